@@ -1,0 +1,6 @@
+//! tour comes later
+pub mod circuit;
+pub mod control;
+pub mod delay;
+pub mod logic;
+pub mod time;
