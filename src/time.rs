@@ -271,7 +271,13 @@ pub fn rounded(fs: i128) -> String {
     let mut unit = unit;
     let text = loop {
         let value = size as f64 / unit.femtoseconds() as f64;
-        let places = if value < 9.995 { 2 } else if value < 99.95 { 1 } else { 0 };
+        let places = if value < 9.995 {
+            2
+        } else if value < 99.95 {
+            1
+        } else {
+            0
+        };
         let text = format!("{value:.places$}");
         // 999.7 ps reads 1.00 ns
         match (text.as_str(), Unit::ALL.get(unit as usize + 1)) {

@@ -141,9 +141,14 @@ mod tests {
             assert_eq!(form.value(sum(row)), truth(row), "{function:?} {pins:?} row {row:b}");
             for unknown in 0..1usize << nets {
                 if row & unknown == 0 {
-                    let all: Vec<bool> = (0..1usize << nets).filter(|fill| fill & !unknown == 0).map(|f| truth(row | f)).collect();
+                    let all: Vec<bool> =
+                        (0..1usize << nets).filter(|fill| fill & !unknown == 0).map(|f| truth(row | f)).collect();
                     let want = if all.iter().all(|v| *v == all[0]) { Value::from(all[0]) } else { Value::X };
-                    assert_eq!(form.value_with_unknown(sum(row), sum(unknown)), want, "{function:?} {row:b} X {unknown:b}");
+                    assert_eq!(
+                        form.value_with_unknown(sum(row), sum(unknown)),
+                        want,
+                        "{function:?} {row:b} X {unknown:b}"
+                    );
                 }
             }
         }

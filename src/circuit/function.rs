@@ -127,7 +127,13 @@ impl Function {
             Function::Xor => ones % 2 == 1,
             Function::Xnor => ones % 2 == 0,
             Function::Majority => ones > pins.len() / 2,
-            Function::Mux => if pins[0] { pins[2] } else { pins[1] },
+            Function::Mux => {
+                if pins[0] {
+                    pins[2]
+                } else {
+                    pins[1]
+                }
+            }
             Function::Expr(expr) => expr.value(pins),
         }
     }

@@ -71,7 +71,8 @@ impl Topology {
                 .collect(),
         };
         let (component, sizes) = components(&graph.reads);
-        let in_loop: Vec<bool> = (0..gates).map(|g| sizes[component[g] as usize] > 1 || graph.reads[g].contains(&(g as u32))).collect();
+        let in_loop: Vec<bool> =
+            (0..gates).map(|g| sizes[component[g] as usize] > 1 || graph.reads[g].contains(&(g as u32))).collect();
         let cut = cut_set(&graph, &component, &in_loop);
         let feedback = (0..gates).filter(|g| cut[*g]).map(|g| NetId((inputs + g) as u32)).collect();
         let (block, blocks) = blocks(&graph);
@@ -163,7 +164,9 @@ fn cut_set(graph: &Graph, component: &[u32], in_loop: &[bool]) -> Vec<bool> {
                 continue;
             }
             let must_cut = ins[gate].binary_search(&g).is_ok();
-            let fold = !must_cut && (ins[gate].len() <= 1 || outs[gate].len() <= 1) && ins[gate].len() * outs[gate].len() <= 64;
+            let fold = !must_cut
+                && (ins[gate].len() <= 1 || outs[gate].len() <= 1)
+                && ins[gate].len() * outs[gate].len() <= 64;
             if !must_cut && !fold {
                 continue;
             }
@@ -201,7 +204,13 @@ fn cut_set(graph: &Graph, component: &[u32], in_loop: &[bool]) -> Vec<bool> {
 }
 
 /// Takes a gate out of the graph; with `bridge`, every way through it becomes a direct way.
-fn take_out(gate: usize, bridge: bool, ins: &mut [Vec<u32>], outs: &mut [Vec<u32>], touched: &mut impl FnMut(u32, u64)) {
+fn take_out(
+    gate: usize,
+    bridge: bool,
+    ins: &mut [Vec<u32>],
+    outs: &mut [Vec<u32>],
+    touched: &mut impl FnMut(u32, u64),
+) {
     let g = gate as u32;
     let (from, to) = (std::mem::take(&mut ins[gate]), std::mem::take(&mut outs[gate]));
     let remove = |list: &mut Vec<u32>, item: u32| {
@@ -260,7 +269,8 @@ fn blocks(graph: &Graph) -> (Vec<u32>, u32) {
 /// Gates in dependency order, taking the cut gates as known.
 fn order(graph: &Graph, cut: &[bool]) -> Vec<GateId> {
     let n = graph.reads.len();
-    let mut waiting: Vec<u32> = (0..n).map(|g| graph.reads[g].iter().filter(|r| !cut[**r as usize]).count() as u32).collect();
+    let mut waiting: Vec<u32> =
+        (0..n).map(|g| graph.reads[g].iter().filter(|r| !cut[**r as usize]).count() as u32).collect();
     let mut ready: std::collections::BinaryHeap<std::cmp::Reverse<u32>> =
         (0..n).filter(|g| waiting[*g] == 0).map(|g| std::cmp::Reverse(g as u32)).collect();
     let mut order = Vec::with_capacity(n);
