@@ -3,4 +3,6 @@ pub mod circuit;
 pub mod control;
 pub mod delay;
 pub mod logic;
+pub mod reader;
+pub mod scenario;
 pub mod time;
