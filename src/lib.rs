@@ -2,5 +2,7 @@
 pub mod circuit;
 pub mod control;
 pub mod delay;
+pub mod instance;
 pub mod logic;
+pub mod scenario;
 pub mod time;
