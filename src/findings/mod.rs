@@ -1,0 +1,10 @@
+//! What can be found in a run, what is asked of it, and the judges that answer.
+//!
+//! The words here are shared by sweep and proof. Judges are observers of a fixed number of words: what they need is
+//! known from the scenario, whatever the length of a run.
+
+mod asked;
+mod words;
+
+pub use asked::{Asked, Pattern, Question, RuleKey};
+pub use words::{Fact, Kind, Measure, Reason, Shape, Subject};
