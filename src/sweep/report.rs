@@ -61,7 +61,7 @@ pub struct Outcome {
 }
 
 /// Settling times of one moment; nearest rank over settled windows and lengths of cut ones.
-#[derive(Clone, Debug, PartialEq, Eq)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Settling {
     /// Shortest of the settled windows.
     pub min: Option<Span>,
