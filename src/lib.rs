@@ -3,4 +3,5 @@ pub mod circuit;
 pub mod control;
 pub mod delay;
 pub mod logic;
+pub mod statics;
 pub mod time;
