@@ -8,5 +8,6 @@ pub mod instance;
 pub mod logic;
 pub mod review;
 pub mod scenario;
+pub mod statics;
 pub mod sweep;
 pub mod time;

@@ -63,7 +63,12 @@ pub fn sweep(
 /// The main job: stable states, typical run, sweep, failing cases, verdict.
 ///
 /// Every failing case is run again by itself and must show what the sweep found.
-pub fn review(scenario: &Scenario, program: &Program, threads: usize, control: &Control) -> Result<Review, ReviewError> {
+pub fn review(
+    scenario: &Scenario,
+    program: &Program,
+    threads: usize,
+    control: &Control,
+) -> Result<Review, ReviewError> {
     let asked = Asked::of(scenario);
     let states = states(&scenario.circuit, control);
     let typical = match scenario.cannot_run {

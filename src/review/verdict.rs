@@ -180,7 +180,9 @@ fn describe(scenario: &Scenario, question: &Question) -> String {
     match (&question.name, question.net, &question.pattern) {
         (Some(name), _, _) => text.push_str(&format!(" \"{name}\"")),
         (None, Some(net), _) => text.push_str(&format!(" {}", scenario.circuit.name(net))),
-        (None, None, Some(pattern)) if matches!(question.rule, RuleKey::Never | RuleKey::NeverAtRest | RuleKey::Timing) => {
+        (None, None, Some(pattern))
+            if matches!(question.rule, RuleKey::Never | RuleKey::NeverAtRest | RuleKey::Timing) =>
+        {
             text.push_str(&format!(" {}", pattern.words(&scenario.circuit)));
         }
         _ => {}
