@@ -87,10 +87,9 @@ pub fn read(text: &str, name: &str) -> Result<Loaded, Diagnostics> {
         return Err(place(name, text, &walk.spans, walk.faults.into_vec()));
     };
     root(&mut walk, &mut builder, table.get_ref());
-    let keys = table.get_ref().keys();
-    let said = ["initial", "begin", "inputs", "gates"]
-        .into_iter()
-        .find_map(|wanted| keys.clone().find(|key| key.get_ref().as_ref() == wanted).map(toml::Spanned::span));
+    let said = ["initial", "begin", "inputs", "gates"].into_iter().find_map(|wanted| {
+        table.get_ref().keys().find(|key| key.get_ref().as_ref() == wanted).map(toml::Spanned::span)
+    });
     let start = walk.mark(said.unwrap_or(0..0));
     builder.faults(walk.faults);
     let checked = builder.finish().and_then(|scenario| match start::check(&scenario, start) {
