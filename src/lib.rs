@@ -2,7 +2,13 @@
 pub mod circuit;
 pub mod control;
 pub mod delay;
+pub mod engine;
+pub mod findings;
+pub mod instance;
 pub mod logic;
 pub mod reader;
+pub mod review;
 pub mod scenario;
+pub mod statics;
+pub mod sweep;
 pub mod time;

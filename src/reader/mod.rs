@@ -7,6 +7,7 @@ mod diagnostics;
 mod file;
 mod gates;
 mod rules;
+mod start;
 mod steps;
 mod syntax;
 mod walk;
@@ -86,8 +87,16 @@ pub fn read(text: &str, name: &str) -> Result<Loaded, Diagnostics> {
         return Err(place(name, text, &walk.spans, walk.faults.into_vec()));
     };
     root(&mut walk, &mut builder, table.get_ref());
+    let said = ["initial", "begin", "inputs", "gates"].into_iter().find_map(|wanted| {
+        table.get_ref().keys().find(|key| key.get_ref().as_ref() == wanted).map(toml::Spanned::span)
+    });
+    let start = walk.mark(said.unwrap_or(0..0));
     builder.faults(walk.faults);
-    match builder.finish() {
+    let checked = builder.finish().and_then(|scenario| match start::check(&scenario, start) {
+        None => Ok(scenario),
+        Some(fault) => Err(vec![fault]),
+    });
+    match checked {
         Ok(scenario) => Ok(Loaded { scenario, spans: walk.spans, text, name: name.to_string() }),
         Err(faults) => Err(place(name, text, &walk.spans, faults)),
     }

@@ -130,4 +130,9 @@ impl Scenario {
             (false, _) => "glitch_free",
         }
     }
+
+    /// The moment of the power-up window, for a run that does not begin at rest.
+    pub fn begin_window(&self) -> Option<u32> {
+        (!matches!(self.begin, Begin::AtRest { .. })).then_some(0)
+    }
 }

@@ -1,0 +1,121 @@
+//! One run of one case: event queue, kernel, windows, recurrence, trace.
+//!
+//! The engine gives changes and windows to an [`Observer`] and knows no hazard and no rule.
+
+mod agenda;
+mod kernel;
+mod level;
+mod observer;
+mod plan;
+mod queue;
+mod recurrence;
+mod trace;
+
+use std::sync::Arc;
+
+use kernel::{Kernel, Many, One};
+use level::{Bit, Ternary};
+pub use observer::{Closing, Deaf, End, Finish, Hit, Observer, Opening};
+use plan::Plan;
+use queue::{Heap, Sorted};
+pub use trace::{Change, Link, Trace, Window};
+
+use crate::control::Control;
+use crate::instance::Instance;
+use crate::logic::{Bits, State};
+use crate::scenario::{Begin, Scenario};
+use crate::statics::{self, NoRest};
+
+/// Nodes up to which pending events are kept in a sorted list.
+const LIST_NODES: usize = 96;
+
+/// A scenario made ready to run; share it between threads.
+#[derive(Clone, Debug)]
+pub struct Program {
+    plan: Arc<Plan>,
+    ternary: bool,
+}
+
+impl Program {
+    /// A program for a scenario; if it begins at rest, its start state is found.
+    ///
+    /// Errors: there is no stable state to begin in, or more than one; see [`NoRest`].
+    pub fn new(scenario: &Scenario, control: &Control) -> Result<Program, NoRest> {
+        match &scenario.begin {
+            Begin::AtRest { named } => {
+                let rest = statics::rest(&scenario.circuit, &scenario.stimulus.initial, named, control)?;
+                Ok(Program::with_rest(scenario, &rest))
+            }
+            Begin::Random | Begin::Unknown => Ok(Program::with_rest(scenario, &Bits::default())),
+        }
+    }
+
+    /// A program that begins at rest in this stable state (all nets), if the scenario begins at rest.
+    pub fn with_rest(scenario: &Scenario, rest: &Bits) -> Program {
+        Program { plan: Arc::new(Plan::new(scenario, Some(rest))), ternary: scenario.begin == Begin::Unknown }
+    }
+
+    /// The state at the start, where it is the same in every run (at rest, or unknown).
+    pub fn start(&self) -> Option<&State> {
+        self.plan.start.as_ref()
+    }
+
+    /// A machine for single runs and sweeps; keep it, it allocates only once. `T` is the observers' tag.
+    pub fn machine<T: Copy + Default>(&self) -> Machine<T> {
+        let list = self.plan.nodes() <= LIST_NODES;
+        self.machine_with(list, self.plan.needs_lists())
+    }
+
+    /// A machine with a chosen queue (sorted list, else heap) and, where one pending event a node would do, lists all
+    /// the same. All choices give the same run; for tests and benchmarks.
+    pub fn machine_with<T: Copy + Default>(&self, sorted: bool, lists: bool) -> Machine<T> {
+        let plan = self.plan.clone();
+        let lists = lists || plan.needs_lists();
+        let core = match (self.ternary, sorted, lists) {
+            (false, true, false) => Core::BitSortedOne(Kernel::new(&plan)),
+            (false, true, true) => Core::BitSortedMany(Kernel::new(&plan)),
+            (false, false, false) => Core::BitHeapOne(Kernel::new(&plan)),
+            (false, false, true) => Core::BitHeapMany(Kernel::new(&plan)),
+            (true, true, false) => Core::TernarySortedOne(Kernel::new(&plan)),
+            (true, true, true) => Core::TernarySortedMany(Kernel::new(&plan)),
+            (true, false, false) => Core::TernaryHeapOne(Kernel::new(&plan)),
+            (true, false, true) => Core::TernaryHeapMany(Kernel::new(&plan)),
+        };
+        Machine { plan, core }
+    }
+}
+
+/// The kernel chosen for a circuit, with its working memory.
+pub struct Machine<T> {
+    plan: Arc<Plan>,
+    core: Core<T>,
+}
+
+enum Core<T> {
+    BitSortedOne(Kernel<Bit, Sorted, One, T>),
+    BitSortedMany(Kernel<Bit, Sorted, Many, T>),
+    BitHeapOne(Kernel<Bit, Heap, One, T>),
+    BitHeapMany(Kernel<Bit, Heap, Many, T>),
+    TernarySortedOne(Kernel<Ternary, Sorted, One, T>),
+    TernarySortedMany(Kernel<Ternary, Sorted, Many, T>),
+    TernaryHeapOne(Kernel<Ternary, Heap, One, T>),
+    TernaryHeapMany(Kernel<Ternary, Heap, Many, T>),
+}
+
+impl<T: Copy + Default> Machine<T> {
+    /// Runs one case to its end, telling the observer. False: the control cancelled it, and the observer has heard no
+    /// [`Observer::finish`].
+    pub fn run<O: Observer<Tag = T>>(&mut self, instance: &Instance, control: &Control, observer: &mut O) -> bool {
+        let plan = &*self.plan;
+        match &mut self.core {
+            Core::BitSortedOne(kernel) => kernel.run(plan, instance, control, observer),
+            Core::BitSortedMany(kernel) => kernel.run(plan, instance, control, observer),
+            Core::BitHeapOne(kernel) => kernel.run(plan, instance, control, observer),
+            Core::BitHeapMany(kernel) => kernel.run(plan, instance, control, observer),
+            Core::TernarySortedOne(kernel) => kernel.run(plan, instance, control, observer),
+            Core::TernarySortedMany(kernel) => kernel.run(plan, instance, control, observer),
+            Core::TernaryHeapOne(kernel) => kernel.run(plan, instance, control, observer),
+            Core::TernaryHeapMany(kernel) => kernel.run(plan, instance, control, observer),
+        }
+    }
+}

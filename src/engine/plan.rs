@@ -1,0 +1,169 @@
+//! A scenario in the form that the kernel runs: flat arrays that no run changes.
+
+use std::sync::Arc;
+
+use crate::circuit::{Circuit, Compiled, GateId, NetId};
+use crate::delay::Filter;
+use crate::instance::Instance;
+use crate::logic::{Bits, State, Value};
+use crate::scenario::{Begin, Limits, Scenario, Stimulus};
+
+/// One reader of a node's value: a gate, or a wire (numbers from the number of gates on).
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Fan {
+    pub node: u32,
+    pub weight: u64,
+}
+
+/// What a node is.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Kind {
+    /// An inertial gate whose function is a one-word table.
+    Table,
+    /// An inertial gate of another function.
+    Wide,
+    /// A transport gate whose function is a one-word table.
+    TransportTable,
+    /// A transport gate of another function.
+    TransportWide,
+    /// The end of a wire.
+    Wire,
+}
+
+impl Kind {
+    /// Do its pending events wait in a list?
+    pub(super) fn is_listed(self) -> bool {
+        !matches!(self, Kind::Table | Kind::Wide)
+    }
+}
+
+#[derive(Clone, Debug)]
+pub(super) struct Plan {
+    pub circuit: Arc<Circuit>,
+    pub stimulus: Arc<Stimulus>,
+    pub limits: Limits,
+    pub inputs: u32,
+    pub gates: u32,
+    /// Does the run begin with a power-up window?
+    pub power_up: bool,
+    /// The state at the start, where it is the same in every run.
+    pub start: Option<State>,
+    pub fan: Vec<Fan>,
+    pub input_fan: Vec<(u32, u32)>,
+    node_fan: Vec<(u32, u32)>,
+    kinds: Vec<Kind>,
+}
+
+impl Plan {
+    /// `rest` is the stable state of the start, for a run that begins at rest.
+    pub(super) fn new(scenario: &Scenario, rest: Option<&Bits>) -> Plan {
+        let circuit = scenario.circuit.clone();
+        let (inputs, gates) = (circuit.input_count(), circuit.gate_count());
+        let mut fan = Vec::new();
+        let mut net_fan = |net: NetId| {
+            let first = fan.len() as u32;
+            for reader in circuit.readers(net) {
+                let node = reader.wire.map_or(reader.gate.0, |wire| gates as u32 + wire.0);
+                fan.push(Fan { node, weight: reader.weight });
+            }
+            (first, fan.len() as u32)
+        };
+        let input_fan = circuit.inputs().map(&mut net_fan).collect();
+        let mut node_fan: Vec<(u32, u32)> = circuit.gates().map(|gate| net_fan(circuit.net_of(gate))).collect();
+        for &(net, gate) in circuit.wires() {
+            let weight = circuit.sources(gate).iter().find(|source| source.0 == net).map_or(0, |source| source.1);
+            node_fan.push((fan.len() as u32, fan.len() as u32 + 1));
+            fan.push(Fan { node: gate.0, weight });
+        }
+        let mut kinds: Vec<Kind> = circuit
+            .gates()
+            .map(|gate| {
+                let table = matches!(circuit.compiled(gate), Compiled::Table(_));
+                match (scenario.delays.filter[gate.index()], table) {
+                    (Filter::Transport, true) => Kind::TransportTable,
+                    (Filter::Transport, false) => Kind::TransportWide,
+                    (_, true) => Kind::Table,
+                    (_, false) => Kind::Wide,
+                }
+            })
+            .collect();
+        kinds.resize(gates + circuit.wire_count(), Kind::Wire);
+
+        let with_inputs = |gate: Value| {
+            let mut state = State::zeros(circuit.net_count());
+            for (input, value) in scenario.stimulus.initial.iter().enumerate() {
+                state.set(input, Value::from(*value));
+            }
+            for net in inputs..inputs + gates {
+                state.set(net, gate);
+            }
+            state
+        };
+        let start = match &scenario.begin {
+            Begin::AtRest { .. } => rest.map(|rest| State::known(rest.clone())),
+            Begin::Random => None,
+            Begin::Unknown => Some(with_inputs(Value::X)),
+        };
+        Plan {
+            stimulus: scenario.stimulus.clone(),
+            limits: scenario.limits,
+            inputs: inputs as u32,
+            gates: gates as u32,
+            power_up: !matches!(scenario.begin, Begin::AtRest { .. }),
+            start,
+            fan,
+            input_fan,
+            node_fan,
+            kinds,
+            circuit,
+        }
+    }
+
+    pub(super) fn nodes(&self) -> usize {
+        self.kinds.len()
+    }
+
+    pub(super) fn kind(&self, node: u32) -> Kind {
+        self.kinds[node as usize]
+    }
+
+    pub(super) fn fan_range(&self, node: u32) -> (u32, u32) {
+        self.node_fan[node as usize]
+    }
+
+    pub(super) fn table(&self, node: u32) -> u64 {
+        match (node < self.gates).then(|| self.circuit.compiled(GateId(node))) {
+            Some(Compiled::Table(table)) => *table,
+            _ => 0,
+        }
+    }
+
+    /// The net that a wire comes from.
+    pub(super) fn wire_source(&self, wire: usize) -> NetId {
+        self.circuit.wires()[wire].0
+    }
+
+    /// The net of the gate that a node belongs to.
+    pub(super) fn owner(&self, node: u32) -> NetId {
+        let gate = match node.checked_sub(self.gates) {
+            None => GateId(node),
+            Some(wire) => self.circuit.wires()[wire as usize].1,
+        };
+        self.circuit.net_of(gate)
+    }
+
+    /// The state at the start of one case, where it differs from run to run.
+    pub(super) fn open_start(&self, instance: &Instance, state: &mut State) {
+        for (input, value) in self.stimulus.initial.iter().enumerate() {
+            state.set(input, Value::from(*value));
+        }
+        for gate in 0..self.gates as usize {
+            state.set(self.inputs as usize + gate, Value::from(instance.start.get(gate)));
+        }
+    }
+
+    /// Does any node keep a list of pending events?
+    pub(super) fn needs_lists(&self) -> bool {
+        self.kinds.iter().any(|kind| kind.is_listed())
+    }
+}

@@ -1,0 +1,13 @@
+//! What can be found in a run, what is asked of it, and the judges that answer.
+//!
+//! The words here are shared by sweep and proof. Judges are observers of a fixed number of words: what they need is
+//! known from the scenario, whatever the length of a run.
+
+mod asked;
+mod judge;
+mod pulses;
+mod words;
+
+pub use asked::{Asked, Pattern, Question, RuleKey};
+pub use judge::{Judge, Match, Seen, Sink, matches, matches_any};
+pub use words::{Fact, Kind, Measure, Reason, Shape, Subject};

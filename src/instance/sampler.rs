@@ -1,0 +1,222 @@
+//! Drawing the case of a sample from its number and the seed alone.
+//!
+//! ChaCha8 seeded by the seed. Sample i is try (i mod tries) of board (i div tries). Board b draws delays and clock
+//! periods from stream 2b, sample i draws places, skew, phases, jitter and start bits from stream 2i + 1. Every quantity
+//! has a fixed place in its stream, counted in u64s, and takes one u64 whether it is needed or not, so that no draw
+//! shifts another:
+//!
+//! | stream | place | quantity |
+//! |---|---|---|
+//! | board | 2·gate + edge (0 fall, 1 rise) | gate delay; one draw for both edges takes place 2·gate |
+//! | board | 2·gates + 2·wire + edge | wire delay, likewise |
+//! | board | 2·(gates + wires) + 2·clock, and + 1 | clock period, time high |
+//! | sample | for each step: 1 + number of inputs it sets | place; skew of each input it sets |
+//! | sample | then for each clock: 1 + 2·count | first edge; jitter of each edge |
+//! | sample | then for each gate: 1 | start bit (the top bit) |
+
+use rand::{Rng, SeedableRng};
+use rand_chacha::ChaCha8Rng;
+
+use super::Instance;
+use crate::delay::{DelayRange, Marginal};
+use crate::logic::Bits;
+use crate::scenario::{Begin, Place, Scenario};
+use crate::time::Span;
+
+/// The number of the layout above; a result of another layout cannot be merged or replayed.
+pub const LAYOUT: u32 = 1;
+
+/// Draws the cases of one scenario, one after the other, without allocating.
+#[derive(Clone, Debug)]
+pub struct Sampler {
+    rng: ChaCha8Rng,
+    draw: Marginal,
+    tries: u64,
+    board_plan: Vec<Quantity>,
+    sample_plan: Vec<Quantity>,
+    start_place: u64,
+    gates: usize,
+    random_start: bool,
+    board: Option<u64>,
+}
+
+/// A quantity that is not exact: its place in the stream, its range, where it goes.
+#[derive(Clone, Copy, Debug)]
+struct Quantity {
+    place: u64,
+    range: DelayRange,
+    target: Target,
+}
+
+#[derive(Clone, Copy, Debug)]
+enum Target {
+    Gate {
+        gate: u32,
+        edge: u8,
+    },
+    GateBoth(u32),
+    Wire {
+        wire: u32,
+        edge: u8,
+    },
+    WireBoth(u32),
+    Period(u32),
+    High(u32),
+    Place(u32),
+    Skew {
+        step: u32,
+        entry: u32,
+    },
+    First(u32),
+    /// The range is shifted up by the jitter.
+    Jitter {
+        clock: u32,
+        edge: u32,
+    },
+}
+
+impl Sampler {
+    /// A sampler for the draws of a scenario.
+    pub fn new(scenario: &Scenario) -> Sampler {
+        let (gates, wires) = (scenario.circuit.gate_count() as u64, scenario.circuit.wire_count() as u64);
+        let stimulus = &scenario.stimulus;
+        let mut board_plan = Vec::new();
+        let mut add = |place: u64, range: DelayRange, target: Target| {
+            if !range.is_exact() {
+                board_plan.push(Quantity { place, range, target });
+            }
+        };
+        for (g, edges) in scenario.delays.gate.iter().enumerate() {
+            let (place, gate) = (2 * g as u64, g as u32);
+            if scenario.delays.gate_one_draw[g] {
+                add(place, edges[0], Target::GateBoth(gate));
+            } else {
+                add(place, edges[0], Target::Gate { gate, edge: 0 });
+                add(place + 1, edges[1], Target::Gate { gate, edge: 1 });
+            }
+        }
+        for (w, edges) in scenario.delays.wire.iter().enumerate() {
+            let (place, wire) = (2 * (gates + w as u64), w as u32);
+            if scenario.delays.wire_one_draw[w] {
+                add(place, edges[0], Target::WireBoth(wire));
+            } else {
+                add(place, edges[0], Target::Wire { wire, edge: 0 });
+                add(place + 1, edges[1], Target::Wire { wire, edge: 1 });
+            }
+        }
+        for (c, clock) in stimulus.clocks.iter().enumerate() {
+            let place = 2 * (gates + wires + c as u64);
+            add(place, clock.period, Target::Period(c as u32));
+            add(place + 1, clock.high, Target::High(c as u32));
+        }
+
+        let mut sample_plan = Vec::new();
+        let mut add = |place: u64, range: DelayRange, target: Target| {
+            if !range.is_exact() {
+                sample_plan.push(Quantity { place, range, target });
+            }
+        };
+        let mut place = 0u64;
+        for (s, step) in stimulus.steps.iter().enumerate() {
+            if let Place::At(range) | Place::After(range) | Place::When { wait: range, .. } = &step.place {
+                add(place, *range, Target::Place(s as u32));
+            }
+            place += 1;
+            for entry in 0..step.set.len() {
+                if let Some(skew) = step.skew {
+                    add(place, skew, Target::Skew { step: s as u32, entry: entry as u32 });
+                }
+                place += 1;
+            }
+        }
+        for (c, clock) in stimulus.clocks.iter().enumerate() {
+            add(place, clock.first, Target::First(c as u32));
+            place += 1;
+            let range = DelayRange::between(Span::ZERO, clock.jitter + clock.jitter);
+            for edge in 0..2 * clock.count {
+                add(place, range, Target::Jitter { clock: c as u32, edge });
+                place += 1;
+            }
+        }
+        Sampler {
+            rng: ChaCha8Rng::seed_from_u64(scenario.plan.seed),
+            draw: scenario.plan.draw,
+            tries: scenario.plan.tries,
+            board_plan,
+            sample_plan,
+            start_place: place,
+            gates: gates as usize,
+            random_start: scenario.begin == Begin::Random,
+            board: None,
+        }
+    }
+
+    /// The board of a sample.
+    pub fn board_of(&self, sample: u64) -> u64 {
+        sample / self.tries
+    }
+
+    /// Draws sample `sample` into an instance of this scenario (made by [`Instance::of`]).
+    ///
+    /// Quantities that are exact are left as they are, so always refill the same instance, or a typical one.
+    pub fn fill(&mut self, sample: u64, into: &mut Instance) {
+        let board = self.board_of(sample);
+        if self.board != Some(board) {
+            self.board = Some(board);
+            let plan = std::mem::take(&mut self.board_plan);
+            self.draw_plan(2 * board, &plan, into);
+            self.board_plan = plan;
+        }
+        let plan = std::mem::take(&mut self.sample_plan);
+        self.draw_plan(2 * sample + 1, &plan, into);
+        self.sample_plan = plan;
+        if self.random_start {
+            self.fill_start(sample, &mut into.start);
+        }
+    }
+
+    /// Draws the start bits of a sample.
+    pub(super) fn fill_start(&mut self, sample: u64, start: &mut Bits) {
+        self.rng.set_stream(2 * sample + 1);
+        self.rng.set_word_pos(2 * u128::from(self.start_place));
+        for gate in 0..self.gates {
+            start.set(gate, self.rng.next_u64() >> 63 == 1);
+        }
+    }
+
+    fn draw_plan(&mut self, stream: u64, plan: &[Quantity], into: &mut Instance) {
+        /// Up to here it is cheaper to draw and drop than to seek.
+        const SKIP: u64 = 16;
+        let Some(first) = plan.first() else { return };
+        self.rng.set_stream(stream);
+        self.rng.set_word_pos(2 * u128::from(first.place));
+        let mut next = first.place;
+        for quantity in plan {
+            if quantity.place - next > SKIP {
+                self.rng.set_word_pos(2 * u128::from(quantity.place));
+            } else {
+                for _ in next..quantity.place {
+                    self.rng.next_u64();
+                }
+            }
+            next = quantity.place + 1;
+            let u = self.rng.next_u64();
+            let span = self.draw.quantile(quantity.range, u);
+            match quantity.target {
+                Target::Gate { gate, edge } => into.delays.gate[gate as usize][edge as usize] = span,
+                Target::GateBoth(gate) => into.delays.gate[gate as usize] = [span, span],
+                Target::Wire { wire, edge } => into.delays.wire[wire as usize][edge as usize] = span,
+                Target::WireBoth(wire) => into.delays.wire[wire as usize] = [span, span],
+                Target::Period(clock) => into.clocks[clock as usize].period = span,
+                Target::High(clock) => into.clocks[clock as usize].high = span,
+                Target::Place(step) => into.places[step as usize] = span,
+                Target::Skew { step, entry } => into.skews[step as usize][entry as usize] = span,
+                Target::First(clock) => into.clocks[clock as usize].first = span,
+                Target::Jitter { clock, edge } => {
+                    let middle = quantity.range.max.fs() / 2;
+                    into.clocks[clock as usize].jitter[edge as usize] = span.fs() as i64 - middle as i64;
+                }
+            }
+        }
+    }
+}

@@ -1,0 +1,226 @@
+//! State variables: the fewest nets that tell the stable states of one input vector apart.
+
+use num_bigint::BigUint;
+use rustc_hash::{FxHashMap, FxHashSet};
+
+use super::GaveUp;
+use super::diagram::{Diagram, Edge};
+use super::fewest::fewest;
+use super::multiplicity::multiplicity;
+use super::product::Part;
+use super::relation::complete;
+use super::state_set::StateSet;
+use crate::circuit::NetId;
+use crate::logic::Bits;
+
+/// Input vectors that are tried for the number of states that must be told apart, where not all can be.
+const TRIED_VECTORS: usize = 16;
+
+/// Nets whose values, with the inputs, determine the stable state.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct StateVariables {
+    /// The nets, in net order.
+    pub nets: Vec<NetId>,
+    /// Is it proved that no fewer nets would do?
+    pub exact: bool,
+}
+
+/// What one part of the circuit, or all of it, needs.
+struct Needed {
+    nets: Vec<NetId>,
+    exact: bool,
+    /// some input vector has at least this many stable states
+    most: BigUint,
+}
+
+/// On which part of the state set a net depends.
+#[derive(Clone, Copy, PartialEq, Eq)]
+enum Rests {
+    OnNothing,
+    On(u32),
+    OnSeveral,
+}
+
+impl StateSet<'_> {
+    /// The fewest gate nets whose values tell the stable states of every input vector apart; of equally few the first in
+    /// net order. Empty if no input vector has several stable states.
+    ///
+    /// Exact where at most `limit` stable states need looking at, in the whole circuit or in each of its independent
+    /// parts. Elsewhere feedback nets are left out one by one, the last first, as long as the others still tell the
+    /// states apart; that is marked as not exact unless counting shows that fewer cannot do.
+    ///
+    /// Errors: see [`StateSet::of`].
+    pub fn state_variables(&self, limit: usize) -> Result<StateVariables, GaveUp> {
+        if self.count() <= BigUint::from(limit) {
+            let gates: Vec<NetId> = self.circuit.gates().map(|gate| self.circuit.net_of(gate)).collect();
+            let needed = self.listed(&self.relation.order, &gates, limit);
+            return Ok(StateVariables { nets: needed.nets, exact: needed.exact });
+        }
+        let rests = self.rests_on();
+        let mut nets_of: Vec<Vec<NetId>> = vec![Vec::new(); self.relation.product.parts.len()];
+        let mut tied = false;
+        for net in self.circuit.gates().map(|gate| self.circuit.net_of(gate)) {
+            match rests[net.index()] {
+                Rests::On(part) => nets_of[part as usize].push(net),
+                Rests::OnSeveral => tied = true,
+                Rests::OnNothing => {}
+            }
+        }
+        let mut all = Needed { nets: Vec::new(), exact: true, most: BigUint::from(1u8) };
+        for (part, nets) in self.relation.product.parts.iter().zip(&nets_of) {
+            let variables: Vec<NetId> = part.levels.iter().map(|level| self.relation.order[*level as usize]).collect();
+            if variables.iter().all(|net| self.circuit.is_input(*net)) {
+                continue;
+            }
+            let product = &self.relation.product;
+            let count = product.diagram.count(part.root, &part.levels, &product.unfixed());
+            let needed = if count <= BigUint::from(limit) {
+                self.listed(&variables, nets, limit)
+            } else {
+                self.thinned_out(part, &variables)?
+            };
+            all.nets.extend(needed.nets);
+            all.exact &= needed.exact;
+            all.most *= needed.most;
+        }
+        all.nets.sort_unstable();
+        // a net that depends on several parts might do the work of one from each, unless counting rules it out
+        let exact = (all.exact && !tied) || all.most > BigUint::from(1u8) << all.nets.len() >> 1;
+        Ok(StateVariables { nets: all.nets, exact })
+    }
+
+    /// Looks at every stable state of some variables (those of a part, or all) and the nets that depend on them alone.
+    fn listed(&self, variables: &[NetId], candidates: &[NetId], limit: usize) -> Needed {
+        let (mut inputs, feedback): (Vec<NetId>, Vec<NetId>) =
+            variables.iter().partition(|net| self.circuit.is_input(**net));
+        let input_count = inputs.len();
+        inputs.extend(feedback);
+        let search = self.levels(&inputs);
+        let product = &self.relation.product;
+        let found = product.first(&product.unfixed(), &search, limit);
+        let mut vectors: Vec<Vec<Bits>> = Vec::new();
+        let mut last: Option<&[bool]> = None;
+        for values in &found {
+            let mut state = Bits::zeros(self.circuit.net_count());
+            for (net, bit) in inputs.iter().zip(values) {
+                state.set(net.index(), *bit);
+            }
+            complete(self.circuit, &mut state);
+            let shown = Bits::of(candidates.iter().map(|net| state.get(net.index())));
+            let vector = &values[..input_count];
+            match vectors.last_mut().filter(|_| last == Some(vector)) {
+                Some(states) => states.push(shown),
+                None => vectors.push(vec![shown]),
+            }
+            last = Some(vector);
+        }
+        let most = vectors.iter().map(Vec::len).max().unwrap_or(1).max(1);
+        let columns = different_columns(&vectors, candidates.len());
+        let mut differences: FxHashSet<Bits> = FxHashSet::default();
+        for states in &vectors {
+            let states: Vec<Bits> =
+                states.iter().map(|state| Bits::of(columns.iter().map(|column| state.get(*column)))).collect();
+            for (at, a) in states.iter().enumerate() {
+                for b in &states[at + 1..] {
+                    let mut differ = a.clone();
+                    differ.words_mut().iter_mut().zip(b.words()).for_each(|(a, b)| *a ^= b);
+                    differences.insert(differ);
+                }
+            }
+        }
+        // k nets tell at most 2^k states apart
+        let bound = most.next_power_of_two().trailing_zeros() as usize;
+        let (chosen, exact) = fewest(differences, columns.len(), bound);
+        let nets = chosen.into_iter().map(|column| candidates[columns[column]]).collect();
+        Needed { nets, exact, most: most.into() }
+    }
+
+    /// Starts with all feedback nets of a part and leaves out what is not needed, the last net first.
+    fn thinned_out(&self, part: &Part, variables: &[NetId]) -> Result<Needed, GaveUp> {
+        let product = &self.relation.product;
+        let mut nets: Vec<NetId> = variables.iter().copied().filter(|net| !self.circuit.is_input(*net)).collect();
+        nets.sort_unstable();
+        let mut outer = vec![false; product.levels()];
+        for net in variables {
+            outer[self.level(*net) as usize] = true;
+        }
+        for at in (0..nets.len()).rev() {
+            let level = self.level(nets[at]) as usize;
+            outer[level] = false;
+            let mut diagram = Diagram::new(&self.control);
+            let given = |level: u32| outer[level as usize];
+            let left = multiplicity(&product.diagram, part.root, &part.levels, given, &mut diagram)?;
+            if left.several == Edge::FALSE {
+                nets.remove(at);
+            } else {
+                outer[level] = true;
+            }
+        }
+        let mut most = BigUint::from(1u8);
+        for cube in product.diagram.cubes(part.root).take(TRIED_VECTORS) {
+            let mut fixed = product.unfixed();
+            for net in variables.iter().filter(|net| self.circuit.is_input(**net)) {
+                fixed[self.level(*net) as usize] = Some(false);
+            }
+            for (level, bit) in cube {
+                if fixed[level as usize].is_some() {
+                    fixed[level as usize] = Some(bit);
+                }
+            }
+            most = most.max(product.diagram.count(part.root, &part.levels, &fixed));
+        }
+        let exact = most > BigUint::from(1u8) << nets.len() >> 1;
+        Ok(Needed { nets, exact, most })
+    }
+
+    /// For each net the part that it depends on.
+    fn rests_on(&self) -> Vec<Rests> {
+        let product = &self.relation.product;
+        let mut rests: Vec<Rests> = self
+            .circuit
+            .nets()
+            .map(|net| match self.relation.level(net) {
+                Some(level) => Rests::On(product.part_of[level as usize]),
+                None => Rests::OnNothing,
+            })
+            .collect();
+        for gate in self.circuit.evaluation_order() {
+            let net = self.circuit.net_of(*gate);
+            if self.relation.level(net).is_none() {
+                rests[net.index()] =
+                    self.circuit.sources(*gate).iter().fold(Rests::OnNothing, |so_far, source| {
+                        match (so_far, rests[source.0.index()]) {
+                            (Rests::OnNothing, other) | (other, Rests::OnNothing) => other,
+                            (a, b) if a == b => a,
+                            _ => Rests::OnSeveral,
+                        }
+                    });
+            }
+        }
+        rests
+    }
+}
+
+/// The columns that tell anything apart, the first of those that tell the same apart.
+fn different_columns(vectors: &[Vec<Bits>], columns: usize) -> Vec<usize> {
+    let states: usize = vectors.iter().map(Vec::len).sum();
+    let mut known: FxHashMap<Bits, usize> = FxHashMap::default();
+    known.insert(Bits::zeros(states), usize::MAX);
+    let mut kept = Vec::new();
+    for column in 0..columns {
+        // against the first state of each vector
+        let mut pattern = Bits::zeros(states);
+        let mut at = 0;
+        for vector in vectors {
+            for state in vector {
+                pattern.set(at, state.get(column) != vector[0].get(column));
+                at += 1;
+            }
+        }
+        if !known.contains_key(&pattern) {
+            known.insert(pattern, column);
+            kept.push(column);
+        }
+    }
+    kept
+}

@@ -1,0 +1,157 @@
+//! What a sweep says, in ids and exact times; names and texts are made where results are written.
+
+use crate::findings::{Question, Reason, Subject};
+use crate::logic::State;
+use crate::scenario::Plan;
+use crate::time::Span;
+
+/// The result of a sweep.
+#[derive(Clone, Debug)]
+pub struct SweepReport {
+    /// What was drawn. `plan.samples` is what was asked for.
+    pub plan: Plan,
+    /// Samples that were run; fewer than asked for only when interrupted, 0 if the circuit cannot be run yet.
+    pub samples: u64,
+    /// One a moment, in the order of [`crate::scenario::Stimulus::moments`].
+    pub windows: Vec<WindowReport>,
+    /// One a question, in the order of [`crate::findings::Asked::questions`].
+    pub rules: Vec<RuleReport>,
+    /// Findings, worst first: rule breakers before others, by kind, by count.
+    pub findings: Vec<Finding>,
+}
+
+/// What happened in the windows of one moment.
+#[derive(Clone, Debug)]
+pub struct WindowReport {
+    /// The moment.
+    pub moment: u32,
+    /// Samples in which the moment came (alone, or together with one that names the window).
+    pub reached: u64,
+    /// Samples in which the moment named the window; all other figures count these.
+    pub named: u64,
+    /// Settled states, commonest first.
+    pub outcomes: Vec<Outcome>,
+    /// There were more outcomes than are kept; the counts of those listed are exact.
+    pub outcomes_truncated: bool,
+    /// Windows that settled.
+    pub settled: u64,
+    /// Windows that a limit ended.
+    pub unsettled: u64,
+    /// Windows that oscillated.
+    pub oscillating: u64,
+    /// Windows that the next step ended.
+    pub cut: u64,
+    /// Windows that began with events pending.
+    pub began_before_rest: u64,
+    /// Settling time; `None` if no window settled or was cut.
+    pub settling: Option<Settling>,
+}
+
+/// One settled state of a window.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Outcome {
+    /// The state.
+    pub state: State,
+    /// In how many samples.
+    pub count: u64,
+    /// The first of them.
+    pub first: u64,
+    /// Does resting here break a rule (`expect`, `never_at_rest`, or a forbidden critical race)?
+    pub breaks_rule: bool,
+}
+
+/// Settling times of one moment; nearest rank over settled windows and lengths of cut ones.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Settling {
+    /// Shortest of the settled windows.
+    pub min: Option<Span>,
+    /// Median.
+    pub median: Span,
+    /// A cut window could make the median longer.
+    pub median_at_least: bool,
+    /// 99th percentile.
+    pub p99: Span,
+    /// A cut window could make the 99th percentile longer.
+    pub p99_at_least: bool,
+    /// Longest.
+    pub max: Span,
+    /// A cut window could make the longest longer.
+    pub max_at_least: bool,
+    /// Relative width of the classes that median and p99 are lower edges of; 0 where they are exact.
+    pub resolution: f64,
+    /// Histogram of settled windows for pictures: (from, up to but not including, count), in order, no empty ends.
+    pub bars: Vec<(Span, Span, u64)>,
+}
+
+/// How a question was answered over all samples.
+#[derive(Clone, Debug)]
+pub struct RuleReport {
+    /// The question.
+    pub question: Question,
+    /// Samples judged.
+    pub judged: u64,
+    /// Samples that broke it.
+    pub broken: u64,
+    /// Samples not judged, by reason, only those that occurred.
+    pub not_judged: Vec<(Reason, u64)>,
+    /// The worst slack seen, in fs; negative when broken. `None` for rules without a number, or never judged.
+    pub margin: Option<i128>,
+    /// The sample of the worst slack.
+    pub margin_sample: Option<u64>,
+}
+
+/// One finding over all samples.
+#[derive(Clone, Debug)]
+pub struct Finding {
+    /// What it is about.
+    pub subject: Subject,
+    /// Does it break a rule?
+    pub breaks_rule: bool,
+    /// Samples that show it.
+    pub count: u64,
+    /// Samples judged.
+    pub of: u64,
+    /// count / of; `None` for `corners` draws and where nothing was judged.
+    pub share: Option<f64>,
+    /// 95 % interval of the share (Clopper–Pearson, two-sided); `None` with tries and for `corners` draws.
+    pub interval: Option<(f64, f64)>,
+    /// By boards, where a board has several tries.
+    pub boards: Option<Boards>,
+    /// The worst value seen.
+    pub worst: Option<Worst>,
+    /// What exact equality of times has to do with it; `None`: not analysed, or nothing.
+    pub tie: Option<Tie>,
+    /// The first sample that shows it.
+    pub sample: Option<u64>,
+    /// The sample of the worst value; the first if there is no measure.
+    pub worst_sample: Option<u64>,
+}
+
+/// A finding by boards.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Boards {
+    /// Boards drawn.
+    pub of: u64,
+    /// Boards that ever show it.
+    pub failing: u64,
+    /// The greatest share of one board's tries.
+    pub worst_share: f64,
+}
+
+/// The worst value of a finding.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Worst {
+    /// A time.
+    Time(Span),
+    /// A share of a delay, 0 to 1.
+    Share(f64),
+}
+
+/// What exact equality of times has to do with a finding.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Tie {
+    /// Gone when delays are moved by single femtoseconds.
+    Vanishes,
+    /// Seen only when delays are moved by single femtoseconds.
+    Appears,
+}
