@@ -126,6 +126,21 @@ fn the_complete_example_reads_without_fault() {
 }
 
 #[test]
+fn a_case_of_the_complete_example_reads_without_fault() {
+    let scenario = reader::read(&complete(), "complete.toml").unwrap_or_else(|faults| panic!("{faults}")).scenario;
+    let path = folder("cases").join("complete-sample-5.toml");
+    let case = reader::load_instance(&path, &scenario).unwrap_or_else(|error| panic!("{error}"));
+    let fs = |span: stillgate::time::Span| span.fs();
+    assert_eq!(case.delays.gate[1].map(fs), [11_095_209, 13_694_352], "fall, then rise");
+    assert_eq!(
+        case.places.iter().copied().map(fs).collect::<Vec<_>>(),
+        [100_000_000, 107_767_971, 200_000_000, 200_000_000]
+    );
+    assert_eq!(case.skews[3].iter().copied().map(fs).collect::<Vec<_>>(), [9_640_374, 15_051_720]);
+    assert_eq!(case.clocks[0].jitter[..2], [-275_629, 469_219]);
+}
+
+#[test]
 fn a_byte_order_mark_is_passed_over() {
     let text = format!("\u{feff}{}", complete());
     assert!(reader::read(&text, "mark.toml").is_ok());
@@ -198,6 +213,29 @@ fn tokens(text: &str) -> Vec<String> {
     tokens
 }
 
+/// What to do with two tokens: delete, duplicate, swap, overwrite.
+type Edit = (u8, prop::sample::Index, prop::sample::Index);
+
+fn edits() -> impl Strategy<Value = Vec<Edit>> {
+    prop::collection::vec((0u8..4, any::<prop::sample::Index>(), any::<prop::sample::Index>()), 1..6)
+}
+
+fn mutated(text: &str, edits: &[Edit]) -> String {
+    let mut parts = tokens(text);
+    for (edit, a, b) in edits {
+        let (a, b) = (a.index(parts.len()), b.index(parts.len()));
+        match edit {
+            0 => {
+                parts.remove(a);
+            }
+            1 => parts.insert(b, parts[a].clone()),
+            2 => parts.swap(a, b),
+            _ => parts[a] = parts[b].clone(),
+        }
+    }
+    parts.concat()
+}
+
 fn config(cases: u32) -> Config {
     Config { cases, failure_persistence: None, rng_seed: RngSeed::Fixed(7), ..Config::default() }
 }
@@ -215,27 +253,25 @@ proptest! {
     #[test]
     fn no_mutation_of_a_scenario_makes_the_reader_panic(
         which in 0usize..1000,
-        edits in prop::collection::vec((0u8..4, any::<prop::sample::Index>(), any::<prop::sample::Index>()), 1..6),
+        edits in edits(),
     ) {
         let paths = files("malformed");
         let text = match paths.get(which) {
             Some(path) => fs::read_to_string(path).expect("a text"),
             None => complete(),
         };
-        let mut parts = tokens(&text);
-        for (edit, a, b) in edits {
-            let (a, b) = (a.index(parts.len()), b.index(parts.len()));
-            match edit {
-                0 => {
-                    parts.remove(a);
-                }
-                1 => parts.insert(b, parts[a].clone()),
-                2 => parts.swap(a, b),
-                _ => parts[a] = parts[b].clone(),
-            }
-        }
-        let text = parts.concat();
+        let text = mutated(&text, &edits);
         if let Err(found) = reader::read(&text, "mutated.toml") {
+            sound(&text, &found)?;
+        }
+    }
+
+    #[test]
+    fn no_mutation_of_a_case_makes_the_reader_panic(edits in edits()) {
+        let scenario = reader::read(&complete(), "complete.toml").expect("a sound scenario").scenario;
+        let path = folder("cases").join("complete-sample-5.toml");
+        let text = mutated(&fs::read_to_string(path).expect("a text"), &edits);
+        if let Err(found) = reader::read_instance(&text, "mutated.toml", &scenario) {
             sound(&text, &found)?;
         }
     }

@@ -6,6 +6,7 @@
 mod diagnostics;
 mod file;
 mod gates;
+mod instance;
 mod rules;
 mod start;
 mod steps;
@@ -20,6 +21,7 @@ use toml::de::DeTable;
 
 pub use diagnostics::{Diagnostic, Diagnostics, Related};
 pub use file::{FileError, MAX_BYTES, ReadError};
+pub use instance::{load_instance, read_instance};
 
 use crate::delay::Marginal;
 use crate::scenario::{BeginAt, Builder, Fault, Mark, Said, Scenario};

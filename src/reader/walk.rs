@@ -6,7 +6,7 @@ use std::ops::Range;
 use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
-use crate::scenario::{Amount, Fault, Faults, Mark, NewDelay, NewRange, NewState, Said, nearest};
+use crate::scenario::{Amount, Comparisons, Fault, Faults, Mark, NewDelay, NewRange, NewState, Said, nearest};
 
 pub(super) type Value<'i> = Spanned<DeValue<'i>>;
 pub(super) type Key<'i> = Spanned<Cow<'i, str>>;
@@ -15,12 +15,13 @@ pub(super) type Key<'i> = Spanned<Cow<'i, str>>;
 pub(super) struct Walk {
     pub spans: Vec<Range<usize>>,
     pub faults: Faults,
+    comparisons: Comparisons,
 }
 
 impl Walk {
     /// Mark 0 is the start of the text.
     pub fn new() -> Walk {
-        Walk { spans: vec![0..0], faults: Faults::default() }
+        Walk { spans: vec![0..0], faults: Faults::default(), comparisons: Comparisons::default() }
     }
 
     /// A new mark for a place.
@@ -38,6 +39,11 @@ impl Walk {
     pub fn said_key(&mut self, key: &Key<'_>) -> Said<String> {
         let mark = self.mark(key.span());
         Said::at(key.get_ref().to_string(), mark)
+    }
+
+    /// The name that is most like a word, as long as names may still be compared.
+    pub fn likely<'a>(&mut self, word: &str, names: impl ExactSizeIterator<Item = &'a str>) -> Option<&'a str> {
+        self.comparisons.nearest(word, names)
     }
 
     fn wrong(&mut self, value: &Value<'_>, expected: &str, help: &str) {

@@ -4,6 +4,7 @@ use std::fmt;
 use std::ops::Range;
 
 use crate::scenario::Mark;
+use crate::time::TimeError;
 
 /// Most faults that one list holds; what is beyond is only counted.
 pub const MAX_FAULTS: usize = 1000;
@@ -27,6 +28,15 @@ impl Fault {
     /// A fault with its remedy.
     pub fn new(mark: Mark, message: impl Into<String>, help: impl Into<String>) -> Fault {
         Fault { mark, message: message.into(), help: help.into(), related: Vec::new(), at: None }
+    }
+
+    /// The fault of a text that is no time.
+    pub fn time(mark: Mark, error: &TimeError) -> Fault {
+        let text = error.to_string();
+        match text.split_once("; ") {
+            Some((message, help)) => Fault::new(mark, message, help),
+            None => Fault::new(mark, text, "round it to whole femtoseconds"),
+        }
     }
 
     /// Adds another place and what is to be seen there.
@@ -119,6 +129,24 @@ pub fn nearest<'a>(word: &str, candidates: impl IntoIterator<Item = &'a str>) ->
         }
     }
     best.map(|(_, candidate)| candidate)
+}
+
+/// Names that may still be compared in search of likely ones: a text full of wrong names must not take quadratic time.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Comparisons(usize);
+
+impl Default for Comparisons {
+    fn default() -> Comparisons {
+        Comparisons(2_000_000)
+    }
+}
+
+impl Comparisons {
+    /// The [`nearest`] of some names, as long as so many names may still be compared.
+    pub fn nearest<'a>(&mut self, word: &str, names: impl ExactSizeIterator<Item = &'a str>) -> Option<&'a str> {
+        self.0 = self.0.checked_sub(names.len())?;
+        nearest(word, names)
+    }
 }
 
 /// The number of letters to insert, delete, replace or swap with their neighbour (each letter once), if it is at most

@@ -70,7 +70,10 @@ pub(super) fn network<'a>(
     }
     if let Some(first) = hides.first() {
         let names = name_list(hides.iter().map(|gate| gate.name.what.as_str()));
-        let note = "as one gate it can show no hazard of its own; if it is built of several gates, write them";
+        let note = match hides.len() {
+            1 => "as one gate it can show no hazard of its own; if it is built of several gates, write them",
+            _ => "as one gate each can show no hazard of its own; if one is built of several gates, write them",
+        };
         context.note(first.name.mark, format!("{names}: {note}"));
     }
     network

@@ -5,7 +5,7 @@ use rustc_hash::{FxHashMap, FxHashSet};
 use super::said::{Amount, NewRange, NewState, Said};
 use crate::circuit::NetId;
 use crate::delay::DelayRange;
-use crate::scenario::{Alternative, Fault, Faults, Mark, nearest};
+use crate::scenario::{Alternative, Comparisons, Fault, Faults, Mark};
 use crate::time::{Span, TimeError, Unit};
 
 /// All names that one network knows, by number: inputs first, then gates.
@@ -17,9 +17,6 @@ pub(super) struct Nets<'a> {
     pub inputs: usize,
 }
 
-/// Names compared for suggestions, over all faults: a file full of wrong names must not take quadratic time.
-const COMPARISONS: usize = 2_000_000;
-
 pub(super) struct Context<'a> {
     pub nets: Nets<'a>,
     pub unit: Unit,
@@ -27,7 +24,7 @@ pub(super) struct Context<'a> {
     pub notes: Vec<Said<String>>,
     pub not_analysed: Vec<Said<String>>,
     pub cannot_run: bool,
-    comparisons: usize,
+    comparisons: Comparisons,
 }
 
 /// The least value that a range may take.
@@ -47,7 +44,7 @@ impl<'a> Context<'a> {
             notes: Vec::new(),
             not_analysed: Vec::new(),
             cannot_run: false,
-            comparisons: COMPARISONS,
+            comparisons: Comparisons::default(),
         }
     }
 
@@ -66,8 +63,7 @@ impl<'a> Context<'a> {
 
     /// The net whose name is most like this one, as long as names may still be compared.
     pub fn likely(&mut self, name: &str) -> Option<&'a str> {
-        self.comparisons = self.comparisons.checked_sub(self.nets.names.len())?;
-        nearest(name, self.nets.names.iter().copied())
+        self.comparisons.nearest(name, self.nets.names.iter().copied())
     }
 
     /// What to do about a name that is no net.
@@ -169,8 +165,7 @@ impl<'a> Context<'a> {
         match parsed {
             Ok(span) => Some(span),
             Err(error) => {
-                let (text, help) = split(&error);
-                self.faults.add(said.mark, text, help);
+                self.faults.push(Fault::time(said.mark, &error));
                 None
             }
         }
@@ -251,15 +246,6 @@ impl<'a> Context<'a> {
         self.faults
             .push(Fault::new(said[0].mark, message, help).related(said[1].mark, format!("{} is here", names[1])));
         None
-    }
-}
-
-/// An error's text in two: what is wrong, and what would be right.
-fn split(error: &TimeError) -> (String, String) {
-    let text = error.to_string();
-    match (text.split_once("; "), error) {
-        (Some((wrong, right)), _) => (wrong.to_string(), right.to_string()),
-        (None, _) => (text, "round it to whole femtoseconds".to_string()),
     }
 }
 

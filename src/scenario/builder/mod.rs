@@ -11,6 +11,8 @@ mod rules;
 mod said;
 mod said_rules;
 mod stimulus;
+#[cfg(test)]
+mod tests;
 
 use std::sync::Arc;
 

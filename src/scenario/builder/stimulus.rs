@@ -302,7 +302,7 @@ fn edges(context: &mut Context<'_>, said: &NewStep) -> Vec<EdgeCount> {
 
 /// How long the inputs of a step may still move after its placed instant.
 fn tail(step: &Step) -> Span {
-    let skew = step.skew.map_or(Span::ZERO, |skew| skew.max);
+    let skew = step.skew.map_or(Span::ZERO, |skew| skew.max - skew.min);
     let bounce = step.bounce.as_ref().map_or(Span::ZERO, |bounce| bounce.lasting.max);
     skew + bounce
 }
