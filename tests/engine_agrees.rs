@@ -4,13 +4,13 @@
 use rand::seq::IndexedRandom;
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
-use stillgate::circuit::{Expr, Function};
+use stillgate::circuit::{Expr, Function, NetId};
 use stillgate::control::Control;
 use stillgate::delay::{DelayRange, Filter};
 use stillgate::engine::{End, Hit, Program};
 use stillgate::instance::{Instance, Which};
 use stillgate::logic::Bits;
-use stillgate::scenario::{Begin, Clock, Mark, Place, Scenario};
+use stillgate::scenario::{Begin, Bounce, Clock, Mark, Place, Scenario};
 
 use crate::support::recorder::{Record, Recorder};
 use crate::support::slow_engine;
@@ -196,6 +196,13 @@ fn clock_and_steps(world: &mut World, rng: &mut ChaCha8Rng, kind: Kind, clocks: 
             world.steps.last_mut().unwrap().skew = Some(DelayRange::between(fs(0), fs(skew_before)));
         }
         earliest += skew_before;
+        if rng.random_bool(0.02) {
+            let bounce = Bounce { lasting: exact(3), pulses: (1, 2) };
+            world.steps.last_mut().unwrap().bounce = Some(bounce);
+        } else if rng.random_bool(0.02) {
+            let pattern = vec![(NetId(0), true)];
+            world.steps.last_mut().unwrap().place = Place::When { pattern, wait: exact(1), timeout: None };
+        }
     }
 }
 
@@ -236,7 +243,7 @@ impl Met {
 /// The case in full, for the message of a failure.
 fn print(scenario: &Scenario, rest: &Bits, instance: &Instance) -> String {
     let circuit = &scenario.circuit;
-    let name = |net: &stillgate::circuit::NetId| circuit.name(*net).to_string();
+    let name = |net: &NetId| circuit.name(*net).to_string();
     let mut text = format!("begin {:?}, limits {:?}\ninputs", scenario.begin, scenario.limits);
     for (net, bit) in circuit.inputs().zip(&scenario.stimulus.initial) {
         text += &format!(" {}={}", name(&net), u8::from(*bit));
@@ -325,7 +332,8 @@ fn compare(scenario: &Scenario, rest: &Bits, instance: &Instance, of: &str) -> R
 /// Compares that many random cases of a kind; returns what was met.
 fn agree(cases: u64, kind: Kind) -> Met {
     let mut met = Met::default();
-    for number in 0..cases {
+    let many: u64 = std::env::var("MANY").map_or(3, |m| m.parse().unwrap());
+    for number in 0..cases * many {
         let mut rng = ChaCha8Rng::seed_from_u64(1);
         rng.set_stream(number);
         let world = world(&mut rng, kind);
@@ -398,5 +406,48 @@ fn rings_that_recur_and_rings_that_nearly_do() {
     let met = agree(250, Kind { filters: Filters::Mixed, wires: 0.2, delays: Lengths::Short, ..kind });
     assert!(met.exact > 50, "{met:?}");
     let met = agree(60, Kind { delays: Lengths::Wide, ..kind });
-    assert!(met.inexact > 20, "{met:?}");
+    assert!(met.inexact > 10, "{met:?}");
+}
+
+/// Runs a world by all machines, from the first of its stable states.
+fn compare_world(world: &World, of: &str) -> Record {
+    let scenario = world.scenario();
+    let rest = stable_states(&scenario.circuit, &scenario.stimulus.initial).swap_remove(0);
+    compare(&scenario, &rest, &world.instance(&scenario), of)
+}
+
+#[test]
+fn a_block_that_dies_away_does_not_name_the_period() {
+    // a pulse of 300 in a loop of two transport gates loses 1 fs a turn of 2000 fs: it passes through the same values a
+    // hundred times and is called an oscillation, then dies; the ring b recurs later and goes on
+    let mut world = World::new();
+    world.input("s", false).input("e", false).input("t", false);
+    world.gate_edges("p", Function::Or, &["s", "q"], 1001, 1000).gate("q", Function::Buf, &["p"], 1000);
+    world.filter(Filter::Transport);
+    world.gate("b", Function::Nand, &["e", "b"], 10_000);
+    world.at(0, &[("s", true), ("e", true)]).at(300, &[("s", false)]).at(1_000_000, &[("t", true)]);
+    let record = compare_world(&world, "dying pulse");
+    let window = &record.windows[1];
+    assert_eq!(window.end, End::Oscillating { period: fs(20_000), range: None });
+    assert_eq!(window.moving, vec![(world.net("b"), 2)]);
+    assert!(record.of(world.net("q")).last().unwrap().0 < 700_000, "the pulse has died");
+}
+
+#[test]
+fn of_blocks_that_recur_at_one_instant_the_first_names_the_period() {
+    // blocks of a (its second gate comes after b in the list) and b, periods 2·(2 + 2) and 2·3
+    let mut periods = [0; 2];
+    for lead in 0..200 {
+        let mut world = World::new();
+        world.input("d", false).input("e", false);
+        world.gate("a", Function::Nand, &["d", "c"], 2).gate("b", Function::Nand, &["e", "b"], 3);
+        world.gate("c", Function::Buf, &["a"], 2);
+        world.at(0, &[("e", true)]).at(lead, &[("d", true)]);
+        let record = compare_world(&world, &format!("lead {lead}"));
+        match record.windows.last().unwrap().end {
+            End::Oscillating { period, range: None } => periods[usize::from(period == fs(6))] += 1,
+            end => panic!("{end:?}"),
+        }
+    }
+    assert!(periods[0] > 0 && periods[1] > 0, "{periods:?}");
 }

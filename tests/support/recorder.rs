@@ -18,12 +18,17 @@ pub struct Record {
     pub swallowed: Vec<Swallow>,
     /// Transitions of nets and arrivals at wire ends.
     pub events: u64,
+    /// The last instant that was looked at.
+    pub end: u64,
+    /// The moment of a step that the engine cannot place yet.
+    pub stopped_before: Option<u32>,
 }
 
 /// One window.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct RecordedWindow {
     pub moment: u32,
+    pub opening: RecordedOpening,
     pub start: u64,
     pub settle_from: u64,
     pub stop: u64,
@@ -33,6 +38,23 @@ pub struct RecordedWindow {
     pub settling: Option<u64>,
     /// Transitions of nets, inputs counted.
     pub transitions: u64,
+    pub state: Vec<Value>,
+    /// Nets with events pending at the end, inputs with changes to come among them.
+    pub pending: Vec<NetId>,
+    /// In an exact oscillation: the nets that move, with their transitions a period.
+    pub moving: Vec<(NetId, u32)>,
+}
+
+/// How it began, beyond what its end repeats.
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
+pub struct RecordedOpening {
+    /// The moments that fall together.
+    pub moments: Vec<u32>,
+    /// The inputs that end up with another value.
+    pub inputs: Vec<NetId>,
+    /// Nets with events pending just before.
+    pub pending: Vec<NetId>,
+    /// The state just before.
     pub state: Vec<Value>,
 }
 
@@ -52,6 +74,14 @@ impl Record {
     pub fn in_order(mut self) -> Record {
         self.changes.sort_by_key(|(at, net, _)| (*at, *net));
         self.swallowed.sort_unstable();
+        for window in &mut self.windows {
+            window.opening.inputs.sort_unstable();
+            for list in [&mut window.pending, &mut window.opening.pending] {
+                list.sort_unstable();
+                list.dedup();
+            }
+            window.moving.sort_unstable();
+        }
         self
     }
 
@@ -72,12 +102,13 @@ pub struct Recorder {
     nets: usize,
     arrivals: u64,
     now: u64,
+    opening: Option<(u64, u64, bool, RecordedOpening)>,
 }
 
 impl Recorder {
     /// For a circuit of this many nets.
     pub fn new(nets: usize) -> Recorder {
-        Recorder { record: Record::default(), nets, arrivals: 0, now: 0 }
+        Recorder { record: Record::default(), nets, arrivals: 0, now: 0, opening: None }
     }
 }
 
@@ -93,7 +124,15 @@ impl Observer for Recorder {
         assert!(opening.at.fs() >= self.now, "time runs backwards");
         assert!(!opening.at_rest || opening.pending.is_empty(), "at rest with events pending: {opening:?}");
         assert!(opening.at_rest || !opening.pending.is_empty() || self.record.windows.is_empty(), "{opening:?}");
+        assert!(self.opening.is_none(), "a window opens within a window");
         self.now = opening.at.fs();
+        let seen = RecordedOpening {
+            moments: opening.moments.to_vec(),
+            inputs: opening.inputs.to_vec(),
+            pending: opening.pending.to_vec(),
+            state: values(opening.state, self.nets),
+        };
+        self.opening = Some((self.now, opening.settle_from.fs(), opening.at_rest, seen));
     }
 
     fn change(&mut self, at: Time, net: NetId, new: Value, _cause: ()) {
@@ -113,8 +152,12 @@ impl Observer for Recorder {
     }
 
     fn close(&mut self, closing: &Closing<'_>) {
+        let (start, settle_from, at_rest, opening) = self.opening.take().expect("a window that closes was opened");
+        assert_eq!((start, settle_from), (closing.start.fs(), closing.settle_from.fs()));
+        assert_eq!((at_rest, opening.moments[0]), (closing.began_at_rest, closing.moment));
         self.record.windows.push(RecordedWindow {
             moment: closing.moment,
+            opening,
             start: closing.start.fs(),
             settle_from: closing.settle_from.fs(),
             stop: closing.at.fs(),
@@ -123,11 +166,23 @@ impl Observer for Recorder {
             settling: (closing.end == End::Settled).then(|| closing.settling_time().fs()),
             transitions: closing.transitions,
             state: values(closing.state, self.nets),
+            pending: closing.pending.to_vec(),
+            moving: match closing.end {
+                End::Oscillating { range: None, .. } => closing.moving.to_vec(),
+                _ => Vec::new(),
+            },
         });
     }
 
     fn finish(&mut self, finish: &Finish<'_>) {
         assert_eq!(finish.events, self.record.changes.len() as u64 + self.arrivals, "events are what was told");
+        assert!(self.opening.is_none(), "the last window is closed");
+        if let Some(last) = self.record.windows.last() {
+            assert_eq!((finish.end, finish.at.fs()), (last.end, last.stop), "the run ends with its last window");
+            assert_eq!(values(finish.state, self.nets), last.state);
+        }
         self.record.events = finish.events;
+        self.record.end = finish.at.fs();
+        self.record.stopped_before = finish.stopped_before;
     }
 }

@@ -1,7 +1,7 @@
 //! A slow engine without tricks, for comparison: everything pending lies in one ordered set, every question is answered
 //! by looking through it, and the rules are written in the order in which the semantics states them.
 
-use std::collections::BTreeSet;
+use std::collections::{BTreeMap, BTreeSet};
 
 use stillgate::circuit::{GateId, NetId};
 use stillgate::delay::Filter;
@@ -11,8 +11,8 @@ use stillgate::logic::{Bits, Value};
 use stillgate::scenario::{Begin, MomentKind, Place, Scenario};
 use stillgate::time::{Span, Time};
 
-use super::recorder::{Record, RecordedWindow, Swallow};
-use super::slow_recurrence::Block;
+use super::recorder::{Record, RecordedOpening, RecordedWindow, Swallow};
+use super::slow_recurrence::{Block, Recurred};
 
 /// Something that will happen at a node: gate number, or number of gates plus wire number.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
@@ -24,7 +24,7 @@ pub struct Event {
 }
 
 struct Open {
-    moment: u32,
+    opening: RecordedOpening,
     start: u64,
     settle_from: u64,
     last: Option<u64>,
@@ -44,6 +44,7 @@ struct Slow<'a> {
     /// Clock edges still to come.
     edges: BTreeSet<(u64, u32, NetId, bool)>,
     next_step: usize,
+    /// The instant of the step before.
     placed: u64,
     blocks: Vec<Block>,
     window: Option<Open>,
@@ -89,8 +90,9 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
         record,
     };
     if !matches!(scenario.begin, Begin::AtRest { .. }) {
+        let opening = RecordedOpening { moments: vec![0], state: slow.nets.clone(), ..RecordedOpening::default() };
         slow.window =
-            Some(Open { moment: 0, start: 0, settle_from: 0, last: None, at_rest: true, transitions: 0 });
+            Some(Open { opening, start: 0, settle_from: 0, last: None, at_rest: true, transitions: 0 });
         for gate in circuit.gates() {
             slow.evaluate(gate);
         }
@@ -135,21 +137,40 @@ impl Slow<'_> {
             || next.is_some_and(|step| step.bounce.is_none() && matches!(step.place, Place::At(_) | Place::After(_)))
     }
 
-    /// The blocks with events pending: all have recurred? Then the end of such a window.
-    fn oscillation(&self) -> Option<End> {
+    /// Have all blocks with events pending recurred? Then the first of them.
+    fn oscillation(&self) -> Option<&Recurred> {
         let at_work = || self.blocks.iter().filter(|block| self.pending.iter().any(|event| block.holds(event.node)));
-        if !self.coming.is_empty() || self.pending.is_empty() || at_work().any(|block| block.recurred.is_none()) {
+        if !self.coming.is_empty() || at_work().any(|block| block.recurred.is_none()) {
             return None;
         }
-        let first = at_work().filter_map(|block| block.recurred.as_ref()).min_by_key(|found| found.at)?;
-        let range = first.range.map(|(least, most)| (Span::from_fs(least), Span::from_fs(most)));
-        Some(End::Oscillating { period: Span::from_fs(first.period), range })
+        at_work().filter_map(|block| block.recurred.as_ref()).min_by_key(|found| found.at)
+    }
+
+    fn end_of(found: &Recurred) -> End {
+        let range = found.range.map(|(least, most)| (Span::from_fs(least), Span::from_fs(most)));
+        End::Oscillating { period: Span::from_fs(found.period), range }
+    }
+
+    /// The nets of what is pending.
+    fn pending_nets(&self) -> Vec<NetId> {
+        let circuit = &self.scenario.circuit;
+        let of = |event: &Event| match event.node.checked_sub(circuit.gate_count()) {
+            None => circuit.net_of(GateId(event.node as u32)),
+            Some(wire) => circuit.net_of(circuit.wires()[wire].1),
+        };
+        self.pending.iter().map(of).chain(self.coming.iter().map(|change| change.1)).collect()
     }
 
     fn close(&mut self, at: u64, end: End) {
+        self.record.end = at;
         let Some(open) = self.window.take() else { return };
+        let moving = match end {
+            End::Oscillating { .. } => self.oscillation().map_or(Vec::new(), |found| found.moving.clone()),
+            _ => Vec::new(),
+        };
         self.record.windows.push(RecordedWindow {
-            moment: open.moment,
+            moment: open.opening.moments[0],
+            opening: open.opening,
             start: open.start,
             settle_from: open.settle_from,
             stop: at,
@@ -158,6 +179,8 @@ impl Slow<'_> {
             settling: (end == End::Settled).then(|| open.last.unwrap_or(0).saturating_sub(open.settle_from)),
             transitions: open.transitions,
             state: self.nets.clone(),
+            pending: self.pending_nets(),
+            moving,
         });
     }
 
@@ -169,13 +192,18 @@ impl Slow<'_> {
         let step = self.step_instant();
         let Some(at) = [event, change, edge, step].into_iter().flatten().min() else {
             self.close(self.now, End::Settled);
+            // it ends at rest before a step that is not analysed yet
+            self.record.stopped_before =
+                (self.next_step < self.scenario.stimulus.steps.len()).then(|| self.moment(self.next_step));
             return false;
         };
         if let (Some(limit), Some(open)) = (self.scenario.limits.time, &self.window)
             && self.busy()
             && at > open.start + limit.fs()
+            && open.start + limit.fs() < Time::END.fs()
         {
-            self.close(self.now, End::Unsettled(Hit::Time)); // TIME
+            let end = open.start + limit.fs();
+            self.close(end, End::Unsettled(Hit::Time));
             return false;
         }
         if at >= Time::END.fs() {
@@ -215,7 +243,7 @@ impl Slow<'_> {
         }
         self.react(&before.0, &before.1);
         if self.busy() {
-            if let (Some(end), false) = (self.oscillation(), self.timed_to_come()) {
+            if let (Some(end), false) = (self.oscillation().map(Slow::end_of), self.timed_to_come()) {
                 self.close(at, end);
                 return false;
             }
@@ -230,28 +258,38 @@ impl Slow<'_> {
     /// Ends the window before and begins one for the steps and clock edges of this instant.
     fn open_window(&mut self, at: u64) {
         let at_rest = !self.busy();
-        let end = if at_rest { End::Settled } else { self.oscillation().unwrap_or(End::Cut) };
+        let end = if at_rest { End::Settled } else { self.oscillation().map_or(End::Cut, Slow::end_of) };
         self.close(at, end);
-        let mut moment = None;
+        let mut opening =
+            RecordedOpening { pending: self.pending_nets(), state: self.nets.clone(), ..RecordedOpening::default() };
         let mut settle_from = at;
+        let mut last: BTreeMap<NetId, bool> = BTreeMap::new();
         // a step by rest is a batch of its own; steps right after it, without a wait, belong to it
-        while self.step_instant() == Some(at) && (moment.is_none() || !self.by_rest()) {
-            let number = self.next_step as u32;
-            let kind = MomentKind::Step(number);
-            let named = self.scenario.stimulus.moments.iter().position(|m| m.kind == kind).expect("a moment a step");
-            moment = moment.or(Some(named as u32));
+        while self.step_instant() == Some(at) && (opening.moments.is_empty() || !self.by_rest()) {
+            opening.moments.push(self.moment(self.next_step));
             let skews = self.instance.skews.get(self.next_step).filter(|skews| !skews.is_empty());
             let least = skews.and_then(|skews| skews.iter().min()).map_or(0, |skew| skew.fs());
             for (entry, (net, bit)) in self.scenario.stimulus.steps[self.next_step].set.iter().enumerate() {
                 let when = at + skews.map_or(0, |skews| skews[entry].fs()) - least;
                 settle_from = settle_from.max(when);
                 self.coming.push((when, *net, *bit));
+                last.insert(*net, *bit);
             }
             self.placed = at;
             self.next_step += 1;
         }
-        let moment = moment.unwrap_or_else(|| self.edges.first().expect("a step or an edge").1);
-        self.window = Some(Open { moment, start: at, settle_from, last: None, at_rest, transitions: 0 });
+        for (_, moment, net, bit) in self.edges.iter().filter(|edge| edge.0 == at) {
+            opening.moments.push(*moment);
+            last.insert(*net, *bit);
+        }
+        let changes = |(net, bit): &(NetId, bool)| self.nets[net.index()] != Value::from(*bit);
+        opening.inputs = last.into_iter().filter(changes).map(|(net, _)| net).collect();
+        self.window = Some(Open { opening, start: at, settle_from, last: None, at_rest, transitions: 0 });
+    }
+
+    fn moment(&self, step: usize) -> u32 {
+        let kind = MomentKind::Step(step as u32);
+        self.scenario.stimulus.moments.iter().position(|m| m.kind == kind).expect("a moment a step") as u32
     }
 
     fn by_rest(&self) -> bool {

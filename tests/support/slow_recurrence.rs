@@ -24,6 +24,8 @@ pub struct Recurred {
     pub at: u64,
     pub period: u64,
     pub range: Option<(u64, u64)>,
+    /// Where it is exact: the nets that moved, with how often.
+    pub moving: Vec<(NetId, u32)>,
 }
 
 struct Note {
@@ -31,6 +33,7 @@ struct Note {
     values: Vec<Value>,
     remaining: BTreeSet<(usize, u64, Value)>,
     passes: Vec<u64>,
+    moved: Vec<NetId>,
 }
 
 impl Block {
@@ -80,11 +83,16 @@ impl Block {
         let remaining = || -> BTreeSet<(usize, u64, Value)> {
             pending.iter().filter(|e| self.nodes.contains(&e.node)).map(|e| (e.node, e.at - at, e.value)).collect()
         };
+        if let Some(note) = &mut self.note {
+            note.moved.extend(self.nets.iter().filter(|net| changed.contains(net)));
+        }
         if let Some(note) = &mut self.note
             && note.values == values()
         {
             if note.remaining == remaining() {
-                self.recurred = Some(Recurred { at, period: at - note.at, range: None });
+                let often = |net: &NetId| (*net, note.moved.iter().filter(|other| *other == net).count() as u32);
+                let moving = self.nets.iter().map(often).filter(|(_, count)| *count > 0).collect();
+                self.recurred = Some(Recurred { at, period: at - note.at, range: None, moving });
                 return;
             }
             note.passes.push(at);
@@ -92,7 +100,7 @@ impl Block {
                 let from = [&[note.at], &note.passes[..]].concat();
                 let lengths = || from.windows(2).map(|pair| pair[1] - pair[0]);
                 let range = (lengths().min().expect("100 of them"), lengths().max().expect("100 of them"));
-                self.recurred = Some(Recurred { at, period: (at - note.at) / 100, range: Some(range) });
+                self.recurred = Some(Recurred { at, period: (at - note.at) / 100, range: Some(range), moving: Vec::new() });
                 return;
             }
         }
@@ -100,7 +108,7 @@ impl Block {
             while self.next <= self.count {
                 self.next *= 2;
             }
-            self.note = Some(Note { at, values: values(), remaining: remaining(), passes: Vec::new() });
+            self.note = Some(Note { at, values: values(), remaining: remaining(), passes: Vec::new(), moved: Vec::new() });
         }
     }
 }
