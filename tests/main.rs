@@ -1,1 +1,4 @@
+//! The promises to the user, one module each.
 
+mod engine_agrees;
+mod support;
