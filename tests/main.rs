@@ -2,3 +2,6 @@
 
 mod engine_agrees;
 mod support;
+//! One module per promise to the user; `outside` checks against published sources.
+
+mod outside;
