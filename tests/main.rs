@@ -5,3 +5,6 @@ mod support;
 //! One module per promise to the user; `outside` checks against published sources.
 
 mod outside;
+//! Promises to the user, one module each.
+
+mod malformed;

@@ -1,10 +1,10 @@
 //! Faults of a text, placed in it and shown like a compiler's.
 
 use std::fmt;
-use std::ops::Range;
+use std::ops::{Range, RangeInclusive};
 use std::sync::Arc;
 
-use annotate_snippets::{AnnotationKind, Level, Origin, Renderer, Snippet};
+use annotate_snippets::{AnnotationKind, Group, Level, Origin, Renderer, Snippet};
 use serde::Serialize;
 
 /// Everything that is wrong with one text, in the order of the text.
@@ -94,34 +94,19 @@ impl Diagnostics {
         let lines = Lines::of(&self.text);
         let mut all = String::new();
         for item in &self.items {
-            let mut group = Level::ERROR
-                .primary_title(item.message.as_str())
-                .element(Origin::path(self.name.as_str()).line(item.line).char_column(item.column));
+            let mut group = Group::with_title(Level::ERROR.primary_title(item.message.as_str()));
             let whole = |line: usize| lines.range(line).len() <= LONGEST_LINE;
-            let near = |related: &&Related| related.line.abs_diff(item.line) <= LINES_APART && whole(related.line);
-            let (near, far): (Vec<_>, Vec<_>) = item.related.iter().partition(|r| whole(item.line) && near(r));
-            let first = near.iter().map(|r| r.line).chain([item.line]).min().unwrap_or(item.line);
-            let last = near.iter().map(|r| r.line).chain([item.line]).max().unwrap_or(item.line);
-            let window = self.window(&lines, first, last, &item.span);
-            let clip = |span: &Range<usize>| {
-                let within = |at: usize| at.clamp(window.start, window.end) - window.start;
-                within(span.start)..within(span.end)
-            };
-            let mut picture = Snippet::source(&self.text[window.clone()]).line_start(first);
-            picture = picture.annotation(AnnotationKind::Primary.span(clip(&item.span)));
-            for related in near {
-                let context = AnnotationKind::Context.span(clip(&related.span));
-                picture = picture.annotation(context.label(related.label.as_str()));
-            }
-            group = group.element(picture);
+            let is_near = |r: &&Related| r.line.abs_diff(item.line) <= LINES_APART && whole(r.line) && whole(item.line);
+            let (near, far): (Vec<_>, Vec<_>) = item.related.iter().partition(is_near);
+            let first = near.iter().map(|r| r.line).fold(item.line, usize::min);
+            let last = near.iter().map(|r| r.line).fold(item.line, usize::max);
+            let mut marks = vec![(AnnotationKind::Primary, &item.span, None)];
+            marks.extend(near.iter().map(|r| (AnnotationKind::Context, &r.span, Some(r.label.as_str()))));
+            group = self.picture(group, &lines, first..=last, (item.line, item.column), &marks);
             for related in far {
-                let window = self.window(&lines, related.line, related.line, &related.span);
-                let start = related.span.start.clamp(window.start, window.end) - window.start;
-                let end = related.span.end.clamp(window.start, window.end) - window.start;
-                let place = Origin::path(self.name.as_str()).line(related.line).char_column(related.column);
-                let picture = Snippet::source(&self.text[window]).line_start(related.line);
-                let context = AnnotationKind::Context.span(start..end);
-                group = group.element(place).element(picture.annotation(context.label(related.label.as_str())));
+                let mark = [(AnnotationKind::Context, &related.span, Some(related.label.as_str()))];
+                let place = (related.line, related.column);
+                group = self.picture(group, &lines, related.line..=related.line, place, &mark);
             }
             group = group.element(Level::HELP.message(item.help.as_str()));
             all += &renderer.render(&[group]);
@@ -134,21 +119,39 @@ impl Diagnostics {
         all + &format!("{}: {count}\n", self.name)
     }
 
-    /// The bytes of these lines, or of the part of a single long one around a place.
-    fn window(&self, lines: &Lines, first: usize, last: usize, around: &Range<usize>) -> Range<usize> {
-        let whole = lines.range(first).start..lines.range(last).end;
-        if first != last || whole.len() <= LONGEST_LINE {
-            return whole;
+    /// Adds some lines with marks to a report. Of a single long line only the part around the first mark is shown.
+    fn picture<'a>(
+        &'a self,
+        group: Group<'a>,
+        lines: &Lines,
+        shown: RangeInclusive<usize>,
+        place: (usize, usize),
+        marks: &[(AnnotationKind, &Range<usize>, Option<&'a str>)],
+    ) -> Group<'a> {
+        let mut window = lines.range(*shown.start()).start..lines.range(*shown.end()).end;
+        let long = shown.start() == shown.end() && window.len() > LONGEST_LINE;
+        if long {
+            let mut start = marks[0].1.start.saturating_sub(LONGEST_LINE / 4).max(window.start);
+            let mut end = (start + LONGEST_LINE).min(window.end);
+            while !self.text.is_char_boundary(start) {
+                start -= 1;
+            }
+            while !self.text.is_char_boundary(end) {
+                end += 1;
+            }
+            window = start..end;
         }
-        let mut start = around.start.saturating_sub(LONGEST_LINE / 4).max(whole.start);
-        let mut end = (start + LONGEST_LINE).min(whole.end);
-        while !self.text.is_char_boundary(start) {
-            start -= 1;
+        let mut picture = Snippet::source(&self.text[window.clone()]).line_start(*shown.start());
+        for (kind, span, label) in marks {
+            let within = |at: usize| at.clamp(window.start, window.end) - window.start;
+            picture = picture.annotation(kind.span(within(span.start)..within(span.end)).label(*label));
         }
-        while !self.text.is_char_boundary(end) {
-            end += 1;
+        if long {
+            // the picture starts within the line, so it cannot tell the column
+            let (line, column) = place;
+            return group.element(Origin::path(self.name.as_str()).line(line).char_column(column)).element(picture);
         }
-        start..end
+        group.element(picture.path(self.name.as_str()))
     }
 }
 

@@ -114,7 +114,7 @@ fn gate_spec(context: &mut Context<'_>, gate: &NewGate) -> GateSpec {
                 Err(error) => {
                     let (message, help) = match error.what.split_once("; ") {
                         Some((message, help)) => (message, help),
-                        None => ("the expression is not complete", error.what.as_str()),
+                        None => ("this is no Boolean expression", error.what.as_str()),
                     };
                     let at = error.at.clone();
                     context.faults.push(Fault::new(text.mark, message, help).within(at));
