@@ -1,1 +1,3 @@
+//! Promises to the user, one module a promise.
 
+mod golden;
