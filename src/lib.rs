@@ -7,6 +7,7 @@ pub mod findings;
 pub mod instance;
 pub mod logic;
 pub mod reader;
+pub mod output;
 pub mod review;
 pub mod scenario;
 pub mod statics;

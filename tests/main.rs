@@ -8,3 +8,6 @@ mod outside;
 //! Promises to the user, one module each.
 
 mod malformed;
+//! Promises to the user, one module a promise.
+
+mod golden;
