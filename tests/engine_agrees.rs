@@ -116,7 +116,13 @@ fn world(rng: &mut ChaCha8Rng, kind: Kind) -> World {
         let one = kind.delays.draw(rng);
         let other = if rng.random_bool(0.5) { one } else { kind.delays.draw(rng) };
         let delay = [exact(one), exact(other)];
-        world.gates.push(Gate { name: nets[nets.len() - gates + g].clone(), function, pins, delay, filter: Filter::Inertial });
+        world.gates.push(Gate {
+            name: nets[nets.len() - gates + g].clone(),
+            function,
+            pins,
+            delay,
+            filter: Filter::Inertial,
+        });
     }
     if kind.rings {
         let (a, b) = (ring(&mut world, rng, "a", kind.delays), ring(&mut world, rng, "b", kind.delays));
@@ -172,7 +178,8 @@ fn clock_and_steps(world: &mut World, rng: &mut ChaCha8Rng, kind: Kind, clocks: 
         let low = 2 * jitter + lengths.draw(rng);
         let period = range(rng, high.max.fs() + low);
         let count = rng.random_range(1..=12);
-        let clock = Clock { net: world.net(&format!("i{c}")), first, period, high, jitter: fs(jitter), count, mark: Mark(0) };
+        let clock =
+            Clock { net: world.net(&format!("i{c}")), first, period, high, jitter: fs(jitter), count, mark: Mark(0) };
         world.clocks.push((format!("i{c}"), clock));
     }
     let free: Vec<String> = world.inputs[clocks..].iter().map(|(name, _)| name.clone()).collect();
@@ -276,7 +283,8 @@ fn print(scenario: &Scenario, rest: &Bits, instance: &Instance) -> String {
             Place::Rest(_) => "rest",
             Place::When { .. } => "when",
         };
-        text += &format!("\nstep {} {word} {} sets {set:?} skew {:?}", s + 1, instance.places[s].fs(), instance.skews[s]);
+        text +=
+            &format!("\nstep {} {word} {} sets {set:?} skew {:?}", s + 1, instance.places[s].fs(), instance.skews[s]);
     }
     for (clock, case) in scenario.stimulus.clocks.iter().zip(&instance.clocks) {
         text += &format!("\nclock {} {case:?}", name(&clock.net));

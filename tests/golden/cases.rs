@@ -120,11 +120,8 @@ impl Case {
             clocks: Vec::new(),
             moments,
         };
-        let outputs: Vec<NetId> = circuit
-            .gates()
-            .map(|gate| circuit.net_of(gate))
-            .filter(|net| circuit.readers(*net).is_empty())
-            .collect();
+        let outputs: Vec<NetId> =
+            circuit.gates().map(|gate| circuit.net_of(gate)).filter(|net| circuit.readers(*net).is_empty()).collect();
         Scenario {
             title: self.title,
             unit: Unit::Ns,
@@ -177,7 +174,13 @@ pub fn net(scenario: &Scenario, name: &str) -> NetId {
 /// A glitch of this net as wide as the place.
 pub fn glitch(net: NetId, shape: Shape, moment: u32, from: &str, to: &str) -> Fact {
     Fact {
-        subject: Subject { kind: Kind::Glitch, shape: Some(shape), question: None, net: Some(net), moment: Some(moment) },
+        subject: Subject {
+            kind: Kind::Glitch,
+            shape: Some(shape),
+            question: None,
+            net: Some(net),
+            moment: Some(moment),
+        },
         breaks_rule: true,
         measure: Some(Measure::long(at(to).since(at(from)))),
         place: Some((at(from), at(to))),

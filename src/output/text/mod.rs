@@ -1,4 +1,6 @@
 //! placeholder
 use crate::scenario::Scenario;
 /// Assumptions.
-pub fn assumptions(_s: &Scenario) -> Vec<String> { Vec::new() }
+pub fn assumptions(_s: &Scenario) -> Vec<String> {
+    Vec::new()
+}

@@ -3,8 +3,8 @@
 use maud::{Markup, html};
 
 use super::Picture;
-use super::frame::{Bracket, Frame, LINE, Lane, MARGIN, SWING, WIDTH};
 use super::flags::OFFSET;
+use super::frame::{Bracket, Frame, LINE, Lane, MARGIN, SWING, WIDTH};
 use super::lane::{Line, line, number};
 use crate::output::ink::{BODY, FINDING, INK, QUIET, REST, SECOND, SMALL};
 
