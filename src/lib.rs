@@ -6,6 +6,7 @@ pub mod engine;
 pub mod findings;
 pub mod instance;
 pub mod logic;
+pub mod output;
 pub mod reader;
 pub mod review;
 pub mod scenario;

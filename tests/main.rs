@@ -1,3 +1,7 @@
-//! Promises to the user, one module each.
+//! The promises to the user, one module each; `outside` checks against published sources.
 
+mod engine_agrees;
+mod golden;
 mod malformed;
+mod outside;
+mod support;

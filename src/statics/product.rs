@@ -75,8 +75,9 @@ impl Product {
             }
         }
         for (part, members) in parts.iter_mut().zip(&mut of_part) {
-            // from the bottom of the diagram up: each step works on the top of what is there
-            members.sort_by_key(|at| std::cmp::Reverse(supports[*at][0]));
+            // from the bottom of the diagram up: each step works on the top of what is there. Told by the lowest variable,
+            // since the topmost may be one that all share
+            members.sort_by_key(|at| std::cmp::Reverse((supports[*at].last().copied(), supports[*at][0])));
             part.root = fold(&mut diagram, conjuncts, &supports, members, &hidden)?;
         }
         if impossible {

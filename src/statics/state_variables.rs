@@ -46,8 +46,8 @@ impl StateSet<'_> {
     /// net order. Empty if no input vector has several stable states.
     ///
     /// Exact where at most `limit` stable states need looking at, in the whole circuit or in each of its independent
-    /// parts. Elsewhere feedback nets are left out one by one, the last first, as long as the others still tell the
-    /// states apart; that is marked as not exact unless counting shows that fewer cannot do.
+    /// parts. Elsewhere feedback nets are left out one by one as long as the others still tell the states apart; that is
+    /// marked as not exact unless counting shows that fewer cannot do.
     ///
     /// Errors: see [`StateSet::of`].
     pub fn state_variables(&self, limit: usize) -> Result<StateVariables, GaveUp> {
@@ -135,27 +135,57 @@ impl StateSet<'_> {
         Needed { nets, exact, most: most.into() }
     }
 
-    /// Starts with all feedback nets of a part and leaves out what is not needed, the last net first.
+    /// Starts with all feedback nets of a part and leaves out what is not needed: the last net first, and, should
+    /// counting not show that this is the best, once more in another order.
     fn thinned_out(&self, part: &Part, variables: &[NetId]) -> Result<Needed, GaveUp> {
-        let product = &self.relation.product;
-        let mut nets: Vec<NetId> = variables.iter().copied().filter(|net| !self.circuit.is_input(*net)).collect();
+        let mut feedback: Vec<NetId> = variables.iter().copied().filter(|net| !self.circuit.is_input(*net)).collect();
+        feedback.sort_unstable_by(|a, b| b.cmp(a));
+        let most = self.most_states(part, variables);
+        let exact = |nets: &[NetId]| most > BigUint::from(1u8) << nets.len() >> 1;
+        let mut nets = self.leave_out(part, variables, &feedback)?;
+        if !exact(&nets) {
+            // loops that read others before those that they read, so that no net is left out because of what follows it
+            let mut place: FxHashMap<u32, u32> = FxHashMap::default();
+            let component = |net: NetId| self.circuit.driver(net).map_or(u32::MAX, |gate| self.circuit.component(gate));
+            for net in &feedback {
+                let first = place.entry(component(*net)).or_insert(u32::MAX);
+                *first = self.level(*net).min(*first);
+            }
+            feedback.sort_unstable_by_key(|net| (std::cmp::Reverse(place[&component(*net)]), *net));
+            let others = self.leave_out(part, variables, &feedback)?;
+            if others.len() < nets.len() {
+                nets = others;
+            }
+        }
         nets.sort_unstable();
+        Ok(Needed { exact: exact(&nets), nets, most })
+    }
+
+    /// Of these feedback nets of a part, those that stay when each in turn is left out if the others do without it.
+    fn leave_out(&self, part: &Part, variables: &[NetId], feedback: &[NetId]) -> Result<Vec<NetId>, GaveUp> {
+        let product = &self.relation.product;
         let mut outer = vec![false; product.levels()];
         for net in variables {
             outer[self.level(*net) as usize] = true;
         }
-        for at in (0..nets.len()).rev() {
-            let level = self.level(nets[at]) as usize;
+        let mut kept = Vec::new();
+        for net in feedback {
+            let level = self.level(*net) as usize;
             outer[level] = false;
             let mut diagram = Diagram::new(&self.control);
             let given = |level: u32| outer[level as usize];
             let left = multiplicity(&product.diagram, part.root, &part.levels, given, &mut diagram)?;
-            if left.several == Edge::FALSE {
-                nets.remove(at);
-            } else {
+            if left.several != Edge::FALSE {
                 outer[level] = true;
+                kept.push(*net);
             }
         }
+        Ok(kept)
+    }
+
+    /// The number of stable states of a part for one of some input vectors, at best of all.
+    fn most_states(&self, part: &Part, variables: &[NetId]) -> BigUint {
+        let product = &self.relation.product;
         let mut most = BigUint::from(1u8);
         for cube in product.diagram.cubes(part.root).take(TRIED_VECTORS) {
             let mut fixed = product.unfixed();
@@ -169,8 +199,7 @@ impl StateSet<'_> {
             }
             most = most.max(product.diagram.count(part.root, &part.levels, &fixed));
         }
-        let exact = most > BigUint::from(1u8) << nets.len() >> 1;
-        Ok(Needed { nets, exact, most })
+        most
     }
 
     /// For each net the part that it depends on.

@@ -1,0 +1,1 @@
+//! Later in this branch.

@@ -1,0 +1,50 @@
+//! What was understood of a scenario.
+
+use serde::Serialize;
+
+use super::parts::{Object, OneLine};
+use crate::output::text::assumptions;
+use crate::output::words;
+use crate::scenario::Scenario;
+
+#[derive(Serialize)]
+struct Check<'a> {
+    format: u32,
+    title: &'a str,
+    unit: &'static str,
+    inputs: OneLine<Vec<&'a str>>,
+    gates: OneLine<Vec<&'a str>>,
+    outputs: OneLine<Vec<&'a str>>,
+    watched: OneLine<Vec<&'a str>>,
+    why_watched: Object<&'a str, &'static str>,
+    steps: usize,
+    moments: usize,
+    feedback: OneLine<Vec<&'a str>>,
+    notes: &'a [String],
+    assumptions: Vec<String>,
+    not_analysed: &'a [String],
+    can_run: bool,
+}
+
+/// The document of `check`. `steps` counts listed steps with loops unrolled, `moments` also clock edges and power-up.
+pub fn check(scenario: &Scenario) -> String {
+    let circuit = &scenario.circuit;
+    let name = |net| words::net(scenario, net);
+    super::document(&Check {
+        format: super::FORMAT,
+        title: &scenario.title,
+        unit: scenario.unit.name(),
+        inputs: OneLine(circuit.inputs().map(name).collect()),
+        gates: OneLine(circuit.gates().map(|gate| name(circuit.net_of(gate))).collect()),
+        outputs: OneLine(words::nets(scenario, &scenario.outputs)),
+        watched: OneLine(words::nets(scenario, &scenario.watched)),
+        why_watched: Object(scenario.watched.iter().map(|net| (name(*net), scenario.why_watched(*net))).collect()),
+        steps: scenario.stimulus.steps.len(),
+        moments: scenario.stimulus.moments.len(),
+        feedback: OneLine(words::nets(scenario, circuit.feedback())),
+        notes: &scenario.notes,
+        assumptions: assumptions(scenario),
+        not_analysed: &scenario.not_analysed,
+        can_run: !scenario.cannot_run,
+    })
+}

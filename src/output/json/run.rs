@@ -1,0 +1,114 @@
+//! One run: waves, windows, what was found.
+
+use serde::Serialize;
+
+use super::parts::{Exact, Level, Lines, Measured, Object, OneLine, state};
+use crate::engine::End;
+use crate::findings::Asked;
+use crate::output::words;
+use crate::review::RunReport;
+use crate::scenario::Scenario;
+use crate::time::Time;
+
+#[derive(Serialize)]
+pub(super) struct Run<'a> {
+    #[serde(skip_serializing_if = "Option::is_none")]
+    format: Option<u32>,
+    delays: String,
+    events: u64,
+    waves: Object<&'a str, OneLine<Vec<(Exact, Level)>>>,
+    windows: Vec<Window<'a>>,
+    facts: Lines<Found<'a>>,
+    stopped_before: Option<&'a str>,
+}
+
+#[derive(Serialize)]
+struct Window<'a> {
+    step: Option<&'a str>,
+    start: Exact,
+    stop: Exact,
+    end: &'static str,
+    settling_time: Option<Exact>,
+    state: Option<OneLine<Object<&'a str, Level>>>,
+    period: Option<Exact>,
+    period_range: Option<OneLine<(Exact, Exact)>>,
+    moving: OneLine<Object<&'a str, u32>>,
+    limit: Option<&'static str>,
+    began_at_rest: bool,
+}
+
+#[derive(Serialize)]
+struct Found<'a> {
+    kind: &'static str,
+    shape: Option<&'static str>,
+    rule: bool,
+    rule_name: Option<&'a str>,
+    pattern: Option<String>,
+    net: Option<&'a str>,
+    step: Option<&'a str>,
+    worst: Option<Measured>,
+    place: Option<(Exact, Exact)>,
+}
+
+impl<'a> Run<'a> {
+    pub fn of(scenario: &'a Scenario, asked: &'a Asked, run: &'a RunReport, format: Option<u32>) -> Run<'a> {
+        let (circuit, unit, trace) = (&*scenario.circuit, scenario.unit, &run.trace);
+        let waves = circuit.nets().zip(trace.by_net(circuit.net_count())).map(|(net, changes)| {
+            let first = (Time::ZERO, trace.start.get(net.index()));
+            let entries = std::iter::once(first).chain(changes);
+            let wave = entries.map(|(at, value)| (Exact::time(at, unit), Level(value))).collect();
+            (circuit.name(net), OneLine(wave))
+        });
+        let window = |window: &'a crate::engine::Window| {
+            let (period, range) = match window.end {
+                End::Oscillating { period, range } => (Some(period), range),
+                _ => (None, None),
+            };
+            let span = |span| Exact::span(span, unit);
+            Window {
+                step: words::step(scenario, Some(window.moment)),
+                start: Exact::time(window.start, unit),
+                stop: Exact::time(window.stop, unit),
+                end: window.end.word(),
+                settling_time: window.settling.map(span),
+                state: (window.end == End::Settled).then(|| state(circuit, &window.state)),
+                period: period.map(span),
+                period_range: range.map(|(least, greatest)| OneLine((span(least), span(greatest)))),
+                moving: OneLine(Object(window.moving.iter().map(|(net, n)| (circuit.name(*net), *n)).collect())),
+                limit: match window.end {
+                    End::Unsettled(hit) => Some(hit.words()),
+                    _ => None,
+                },
+                began_at_rest: window.began_at_rest,
+            }
+        };
+        let fact = |fact: &'a crate::findings::Fact| {
+            let named = words::subject(scenario, asked, &fact.subject);
+            Found {
+                kind: named.kind,
+                shape: named.shape,
+                rule: fact.breaks_rule,
+                rule_name: named.rule_name,
+                pattern: named.pattern,
+                net: named.net,
+                step: named.step,
+                worst: words::worst_of(fact).map(|worst| Measured::of(worst, unit)),
+                place: fact.place.map(|(from, to)| (Exact::time(from, unit), Exact::time(to, unit))),
+            }
+        };
+        Run {
+            format,
+            delays: run.which.key(),
+            events: trace.events,
+            waves: Object(waves.collect()),
+            windows: trace.windows.iter().map(window).collect(),
+            facts: Lines(run.facts.iter().map(fact).collect()),
+            stopped_before: words::step(scenario, trace.stopped_before),
+        }
+    }
+}
+
+/// The document of `run`. `stop` of a window is where it ended, `end` how.
+pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport) -> String {
+    super::document(&Run::of(scenario, asked, report, Some(super::FORMAT)))
+}

@@ -1,0 +1,202 @@
+//! The sweep: windows, rules, findings.
+
+use serde::Serialize;
+
+use super::parts::{Exact, Level, Measured, Object, OneLine, state};
+use crate::findings::Asked;
+use crate::output::words::{self, six};
+use crate::scenario::Scenario;
+use crate::sweep::{Finding, RuleReport, Settling, SweepReport, WindowReport};
+
+#[derive(Serialize)]
+pub(super) struct Sweep<'a> {
+    #[serde(skip_serializing_if = "Option::is_none")]
+    format: Option<u32>,
+    samples: u64,
+    samples_asked: u64,
+    seed: u64,
+    tries: u64,
+    draw: &'static str,
+    windows: Vec<Window<'a>>,
+    rules: Vec<Rule<'a>>,
+    findings: Vec<Found<'a>>,
+    unseen_mass: Option<()>,
+}
+
+#[derive(Serialize)]
+struct Window<'a> {
+    step: Option<&'a str>,
+    reached: u64,
+    named: u64,
+    outcomes: Vec<Outcome<'a>>,
+    outcomes_truncated: bool,
+    settled: u64,
+    unsettled: u64,
+    oscillating: u64,
+    cut: u64,
+    began_before_rest: u64,
+    settling_time: Option<SettlingTime>,
+}
+
+#[derive(Serialize)]
+struct Outcome<'a> {
+    state: OneLine<Object<&'a str, Level>>,
+    count: u64,
+    first: u64,
+    breaks_rule: bool,
+}
+
+#[derive(Serialize)]
+struct SettlingTime {
+    min: Option<Exact>,
+    median: Exact,
+    p99: Exact,
+    max: Exact,
+    at_least: bool,
+    median_at_least: bool,
+    p99_at_least: bool,
+    max_at_least: bool,
+    resolution: f64,
+}
+
+#[derive(Serialize)]
+struct Rule<'a> {
+    rule: &'static str,
+    name: Option<&'a str>,
+    net: Option<&'a str>,
+    pattern: Option<String>,
+    step: Option<&'a str>,
+    bound: Option<Exact>,
+    judged: u64,
+    broken: u64,
+    not_judged: OneLine<Object<&'static str, u64>>,
+    margin: Option<Exact>,
+    margin_sample: Option<u64>,
+}
+
+#[derive(Serialize)]
+struct Found<'a> {
+    kind: &'static str,
+    shape: Option<&'static str>,
+    rule: bool,
+    rule_name: Option<&'a str>,
+    pattern: Option<String>,
+    net: Option<&'a str>,
+    step: Option<&'a str>,
+    count: u64,
+    of: u64,
+    share: Option<f64>,
+    interval: Option<OneLine<[f64; 2]>>,
+    boards: Option<OneLine<Boards>>,
+    worst: Option<Measured>,
+    tie: Option<&'static str>,
+    sample: Option<u64>,
+    worst_sample: Option<u64>,
+}
+
+#[derive(Serialize)]
+struct Boards {
+    of: u64,
+    failing: u64,
+    worst_share: f64,
+}
+
+impl<'a> Sweep<'a> {
+    pub fn of(scenario: &'a Scenario, asked: &'a Asked, report: &'a SweepReport, format: Option<u32>) -> Sweep<'a> {
+        Sweep {
+            format,
+            samples: report.samples,
+            samples_asked: report.plan.samples,
+            seed: report.plan.seed,
+            tries: report.plan.tries,
+            draw: report.plan.draw.name(),
+            windows: report.windows.iter().map(|it| window(scenario, it)).collect(),
+            rules: report.rules.iter().map(|it| rule(scenario, it)).collect(),
+            findings: report.findings.iter().map(|it| finding(scenario, asked, it)).collect(),
+            unseen_mass: None,
+        }
+    }
+}
+
+fn window<'a>(scenario: &'a Scenario, report: &WindowReport) -> Window<'a> {
+    let outcomes = report.outcomes.iter().map(|it| Outcome {
+        state: state(&scenario.circuit, &it.state),
+        count: it.count,
+        first: it.first,
+        breaks_rule: it.breaks_rule,
+    });
+    Window {
+        step: words::step(scenario, Some(report.moment)),
+        reached: report.reached,
+        named: report.named,
+        outcomes: outcomes.collect(),
+        outcomes_truncated: report.outcomes_truncated,
+        settled: report.settled,
+        unsettled: report.unsettled,
+        oscillating: report.oscillating,
+        cut: report.cut,
+        began_before_rest: report.began_before_rest,
+        settling_time: report.settling.as_ref().map(|it| settling_time(scenario, it)),
+    }
+}
+
+fn settling_time(scenario: &Scenario, settling: &Settling) -> SettlingTime {
+    let exact = |span| Exact::span(span, scenario.unit);
+    SettlingTime {
+        min: settling.min.map(exact),
+        median: exact(settling.median),
+        p99: exact(settling.p99),
+        max: exact(settling.max),
+        at_least: settling.median_at_least || settling.p99_at_least || settling.max_at_least,
+        median_at_least: settling.median_at_least,
+        p99_at_least: settling.p99_at_least,
+        max_at_least: settling.max_at_least,
+        resolution: six(settling.resolution),
+    }
+}
+
+fn rule<'a>(scenario: &'a Scenario, report: &'a RuleReport) -> Rule<'a> {
+    let question = &report.question;
+    Rule {
+        rule: question.rule.word(),
+        name: question.name.as_deref(),
+        net: question.net.map(|net| words::net(scenario, net)),
+        pattern: question.pattern.as_ref().map(|pattern| pattern.words(&scenario.circuit)),
+        step: words::step(scenario, question.moment),
+        bound: question.bound.map(|bound| Exact::span(bound, scenario.unit)),
+        judged: report.judged,
+        broken: report.broken,
+        not_judged: OneLine(Object(report.not_judged.iter().map(|(reason, n)| (reason.words(), *n)).collect())),
+        margin: report.margin.map(|fs| Exact::signed(fs, scenario.unit)),
+        margin_sample: report.margin_sample,
+    }
+}
+
+fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> Found<'a> {
+    let named = words::subject(scenario, asked, &finding.subject);
+    Found {
+        kind: named.kind,
+        shape: named.shape,
+        rule: finding.breaks_rule,
+        rule_name: named.rule_name,
+        pattern: named.pattern,
+        net: named.net,
+        step: named.step,
+        count: finding.count,
+        of: finding.of,
+        share: finding.share.map(six),
+        interval: finding.interval.map(|(low, high)| OneLine([six(low), six(high)])),
+        boards: finding
+            .boards
+            .map(|it| OneLine(Boards { of: it.of, failing: it.failing, worst_share: six(it.worst_share) })),
+        worst: finding.worst.map(|worst| Measured::of(worst, scenario.unit)),
+        tie: finding.tie.map(words::tie),
+        sample: finding.sample,
+        worst_sample: finding.worst_sample,
+    }
+}
+
+/// The document of `sweep`.
+pub fn sweep(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
+    super::document(&Sweep::of(scenario, asked, report, Some(super::FORMAT)))
+}

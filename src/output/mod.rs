@@ -1,0 +1,15 @@
+//! What a person sees: waveforms, charts, tables, JSON, texts and the folder that they go into.
+//!
+//! Nothing about circuits is computed here. Every function takes results in numbers and exact times, and a
+//! [`Scenario`](crate::scenario::Scenario) for the names, and gives back text or bytes; the same input gives the same
+//! bytes on every machine. Only [`bundle::write`] touches a disk, and nothing prints.
+
+pub mod bundle;
+pub mod charts;
+mod ink;
+pub mod json;
+mod measure;
+pub mod tables;
+pub mod text;
+pub mod waves;
+mod words;

@@ -1,0 +1,201 @@
+//! Results as CSV. Units stand in the headers; what is missing is an empty field, never 0; the order is fixed.
+
+use crate::findings::{Asked, Reason};
+use crate::logic::Bits;
+use crate::output::words::{self, six};
+use crate::review::StatesReport;
+use crate::scenario::Scenario;
+use crate::sweep::{SweepReport, Worst};
+use crate::time::Decimal;
+
+/// Writes a table into memory, where only rows of unequal length could fail; the tables here have none.
+pub(super) fn write(rows: impl FnOnce(&mut csv::Writer<Vec<u8>>) -> csv::Result<()>) -> String {
+    let mut to = csv::Writer::from_writer(Vec::new());
+    rows(&mut to).expect("rows of equal length go into memory");
+    let bytes = to.into_inner().expect("memory takes every byte");
+    String::from_utf8(bytes).expect("all fields are text")
+}
+
+/// A field that may be missing.
+fn or_empty(field: Option<impl ToString>) -> String {
+    field.map_or_else(String::new, |it| it.to_string())
+}
+
+/// A name that may be missing.
+fn name(field: Option<&str>) -> String {
+    field.unwrap_or_default().to_string()
+}
+
+fn yes_no(yes: bool) -> String {
+    if yes { "yes" } else { "no" }.to_string()
+}
+
+/// Where the circuit came to rest after each step: one row an outcome, commonest first within a step.
+///
+/// Columns: step, count, named (samples in which the step named its window), first_sample, breaks_rule, then one column a
+/// net with its value at rest, in net order.
+pub fn outcomes(scenario: &Scenario, report: &SweepReport) -> String {
+    let circuit = &scenario.circuit;
+    write(|to| {
+        let fixed = ["step", "count", "named", "first_sample", "breaks_rule"];
+        to.write_record(fixed.into_iter().chain(circuit.nets().map(|net| circuit.name(net))))?;
+        for window in &report.windows {
+            for outcome in &window.outcomes {
+                let mut row = vec![
+                    name(words::step(scenario, Some(window.moment))),
+                    outcome.count.to_string(),
+                    window.named.to_string(),
+                    outcome.first.to_string(),
+                    yes_no(outcome.breaks_rule),
+                ];
+                row.extend(circuit.nets().map(|net| outcome.state.get(net.index()).to_string()));
+                to.write_record(&row)?;
+            }
+        }
+        Ok(())
+    })
+}
+
+/// Findings, worst first, with the keys of the JSON as columns. `worst` has two columns, one for times and one for shares
+/// of a delay.
+pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
+    let unit = scenario.unit;
+    write(|to| {
+        to.write_record([
+            "kind",
+            "shape",
+            "rule",
+            "rule_name",
+            "pattern",
+            "net",
+            "step",
+            "count",
+            "of",
+            "share",
+            "interval_low",
+            "interval_high",
+            "boards_of",
+            "boards_failing",
+            "boards_worst_share",
+            &format!("worst [{unit}]"),
+            "worst [share of the delay]",
+            "tie",
+            "sample",
+            "worst_sample",
+        ])?;
+        for finding in &report.findings {
+            let named = words::subject(scenario, asked, &finding.subject);
+            let (time, share) = match finding.worst {
+                Some(Worst::Time(span)) => (span.decimal(unit).to_string(), String::new()),
+                Some(Worst::Share(share)) => (String::new(), six(share).to_string()),
+                None => (String::new(), String::new()),
+            };
+            to.write_record([
+                named.kind.to_string(),
+                name(named.shape),
+                yes_no(finding.breaks_rule),
+                name(named.rule_name),
+                named.pattern.unwrap_or_default(),
+                name(named.net),
+                name(named.step),
+                finding.count.to_string(),
+                finding.of.to_string(),
+                or_empty(finding.share.map(six)),
+                or_empty(finding.interval.map(|it| six(it.0))),
+                or_empty(finding.interval.map(|it| six(it.1))),
+                or_empty(finding.boards.map(|it| it.of)),
+                or_empty(finding.boards.map(|it| it.failing)),
+                or_empty(finding.boards.map(|it| six(it.worst_share))),
+                time,
+                share,
+                name(finding.tie.map(words::tie)),
+                or_empty(finding.sample),
+                or_empty(finding.worst_sample),
+            ])?;
+        }
+        Ok(())
+    })
+}
+
+/// Rules: how often each was judged, broken, not judged and why, and its margin.
+pub fn rules(scenario: &Scenario, report: &SweepReport) -> String {
+    let unit = scenario.unit;
+    write(|to| {
+        let mut header: Vec<String> =
+            ["rule", "name", "net", "pattern", "step"].into_iter().map(String::from).collect();
+        header.push(format!("bound [{unit}]"));
+        header.extend(["judged".to_string(), "broken".to_string()]);
+        header.extend(Reason::ALL.iter().map(|reason| format!("not judged: {}", reason.words())));
+        header.extend([format!("margin [{unit}]"), "margin_sample".to_string()]);
+        to.write_record(&header)?;
+        for rule in &report.rules {
+            let question = &rule.question;
+            let mut row = vec![
+                question.rule.word().to_string(),
+                name(question.name.as_deref()),
+                name(question.net.map(|net| words::net(scenario, net))),
+                or_empty(question.pattern.as_ref().map(|pattern| pattern.words(&scenario.circuit))),
+                name(words::step(scenario, question.moment)),
+                or_empty(question.bound.map(|bound| bound.decimal(unit))),
+                rule.judged.to_string(),
+                rule.broken.to_string(),
+            ];
+            // a reason that did not occur was counted, and its count is 0
+            row.extend(Reason::ALL.iter().map(|reason| {
+                let count = rule.not_judged.iter().find(|(why, _)| why == reason);
+                count.map_or(0, |(_, n)| *n).to_string()
+            }));
+            row.push(or_empty(rule.margin.map(|fs| Decimal::new(fs, unit))));
+            row.push(or_empty(rule.margin_sample));
+            to.write_record(&row)?;
+        }
+        Ok(())
+    })
+}
+
+/// Stable states: one row a stable state, by input vector; an input vector without any has one row with empty gates.
+///
+/// Columns: states (how many the input vector has), then the nets in net order. A list that a limit cut ends early; the
+/// text and the JSON say so.
+pub fn states(scenario: &Scenario, report: &StatesReport) -> String {
+    let circuit = &scenario.circuit;
+    write(|to| {
+        to.write_record(std::iter::once("states").chain(circuit.nets().map(|net| circuit.name(net))))?;
+        for (inputs, states) in &report.inputs {
+            let mut row = |gate: &dyn Fn(usize) -> String| {
+                let values = circuit.nets().map(|net| match inputs.get(net.index()) {
+                    Some(bit) => u8::from(*bit).to_string(),
+                    None => gate(net.index()),
+                });
+                to.write_record(std::iter::once(states.len().to_string()).chain(values))
+            };
+            if states.is_empty() {
+                row(&|_| String::new())?;
+            }
+            for state in states {
+                let state: &Bits = state;
+                row(&|net| u8::from(state.get(net)).to_string())?;
+            }
+        }
+        Ok(())
+    })
+}
+
+/// Settling-time histogram of every step: settled windows by class, `from` up to but not including `to`.
+pub fn settling(scenario: &Scenario, report: &SweepReport) -> String {
+    let unit = scenario.unit;
+    write(|to| {
+        to.write_record(["step", &format!("from [{unit}]"), &format!("to [{unit}]"), "count"])?;
+        for window in &report.windows {
+            for (from, below, count) in window.settling.iter().flat_map(|it| &it.bars) {
+                to.write_record([
+                    name(words::step(scenario, Some(window.moment))),
+                    from.decimal(unit).to_string(),
+                    below.decimal(unit).to_string(),
+                    count.to_string(),
+                ])?;
+            }
+        }
+        Ok(())
+    })
+}

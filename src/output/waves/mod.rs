@@ -1,0 +1,106 @@
+//! Waveforms: lanes drawn like a data-book timing diagram, and the same as a table.
+//!
+//! A picture is a stack of [`Layer`]s on one time axis. It is split into sheets where it has more nets than are legible
+//! on one, and says which nets no sheet shows.
+
+mod axis;
+mod choose;
+mod csv;
+mod draw;
+mod flags;
+mod frame;
+mod lane;
+mod marks;
+
+use crate::circuit::NetId;
+use crate::findings::Asked;
+use crate::review::RunReport;
+use crate::scenario::Scenario;
+use crate::time::Time;
+
+pub use self::csv::csv;
+
+/// Most lanes of one sheet.
+pub const MOST_LANES: usize = 40;
+/// Most sheets of one picture.
+pub const MOST_SHEETS: usize = 8;
+/// Most edges of one sheet that are drawn one by one; above, edges within one pixel become a solid block.
+pub const MOST_EDGES: usize = 5_000;
+
+/// One thing drawn on the common time axis, the first at the front.
+#[derive(Clone, Copy, Debug)]
+pub enum Layer<'a> {
+    /// One run: its waves, and, for the first of a picture, its steps, settling times and findings.
+    Run(&'a RunReport),
+}
+
+/// Which nets get a lane. Lanes come in net order: the order of the file, inputs first.
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
+pub enum Nets {
+    /// All, on as many sheets as it takes, up to [`MOST_SHEETS`].
+    #[default]
+    All,
+    /// At most one sheet: all if they fit, else those that tell most: nets of findings, watched nets, inputs that move,
+    /// loop nets, other nets that move.
+    Telling,
+    /// These.
+    These(Vec<NetId>),
+}
+
+/// A picture to draw.
+#[derive(Clone, Debug)]
+pub struct Picture<'a> {
+    /// Names, unit and title.
+    pub scenario: &'a Scenario,
+    /// The questions that facts refer to.
+    pub asked: &'a Asked,
+    /// What to draw.
+    pub layers: Vec<Layer<'a>>,
+    /// For which nets.
+    pub nets: Nets,
+    /// From when to when; `None` for the whole run.
+    pub range: Option<(Time, Time)>,
+    /// Begins every XML id in the picture, so that several pictures can stand in one page: letters, digits, `-`.
+    pub id: String,
+}
+
+/// One sheet of a picture.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Sheet {
+    /// A complete SVG element, about 1000 pixels wide, with a text alternative.
+    pub svg: String,
+    /// The nets it shows.
+    pub nets: Vec<NetId>,
+    /// Nets that were asked for and that no sheet shows.
+    pub left_out: Vec<NetId>,
+}
+
+impl<'a> Picture<'a> {
+    /// A picture of one run, with all its nets and all its time.
+    pub fn of_run(scenario: &'a Scenario, asked: &'a Asked, run: &'a RunReport, id: &str) -> Picture<'a> {
+        let layers = vec![Layer::Run(run)];
+        Picture { scenario, asked, layers, nets: Nets::All, range: None, id: id.to_string() }
+    }
+
+    /// The run at the front.
+    fn front(&self) -> Option<&'a RunReport> {
+        self.runs().next()
+    }
+
+    fn runs(&self) -> impl Iterator<Item = &'a RunReport> {
+        self.layers.iter().map(|layer| match layer {
+            Layer::Run(run) => *run,
+        })
+    }
+}
+
+/// Draws a picture: at least one sheet.
+pub fn sheets(picture: &Picture<'_>) -> Vec<Sheet> {
+    let choice = choose::choose(picture);
+    let many = choice.sheets.len();
+    let draw = |(number, nets): (usize, Vec<NetId>)| {
+        let frame = frame::Frame::new(picture, &nets, &choice.left_out, (number, many));
+        Sheet { svg: draw::svg(picture, &frame), nets, left_out: choice.left_out.clone() }
+    };
+    choice.sheets.into_iter().enumerate().map(draw).collect()
+}

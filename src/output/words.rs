@@ -1,0 +1,130 @@
+//! From numbers to the names and words that every output shares.
+
+use crate::circuit::NetId;
+use crate::findings::{Asked, Fact, Kind, Subject};
+use crate::instance::Which;
+use crate::scenario::Scenario;
+use crate::sweep::{Tie, Worst};
+use crate::time::Span;
+
+/// The label of a moment; `None` at rest before the first step.
+pub(super) fn step(scenario: &Scenario, moment: Option<u32>) -> Option<&str> {
+    let moment = scenario.stimulus.moments.get(moment? as usize)?;
+    Some(&moment.label)
+}
+
+/// The name of a net.
+pub(super) fn net(scenario: &Scenario, net: NetId) -> &str {
+    scenario.circuit.name(net)
+}
+
+/// The names of some nets.
+pub(super) fn nets<'a>(scenario: &'a Scenario, nets: &[NetId]) -> Vec<&'a str> {
+    nets.iter().map(|id| net(scenario, *id)).collect()
+}
+
+/// What a finding or fact is about, in words.
+pub(super) struct Named<'a> {
+    pub kind: &'static str,
+    pub shape: Option<&'static str>,
+    pub rule_name: Option<&'a str>,
+    pub pattern: Option<String>,
+    pub net: Option<&'a str>,
+    pub step: Option<&'a str>,
+}
+
+/// The words of a subject.
+pub(super) fn subject<'a>(scenario: &'a Scenario, asked: &'a Asked, subject: &Subject) -> Named<'a> {
+    let question = subject.question.and_then(|number| asked.questions.get(number as usize));
+    Named {
+        kind: subject.kind.word(),
+        shape: subject.shape.map(|shape| shape.word()),
+        rule_name: question.and_then(|question| question.name.as_deref()),
+        pattern: question
+            .and_then(|question| question.pattern.as_ref())
+            .map(|pattern| pattern.words(&scenario.circuit)),
+        net: subject.net.map(|id| net(scenario, id)),
+        step: step(scenario, subject.moment),
+    }
+}
+
+/// The measured value of a fact: a time, or a share of a delay.
+pub(super) fn worst_of(fact: &Fact) -> Option<Worst> {
+    let measure = fact.measure?;
+    Some(match fact.subject.kind {
+        Kind::Swallowed => Worst::Share(measure.as_share()),
+        _ => Worst::Time(Span::from_fs(measure.value)),
+    })
+}
+
+/// The word of a tie in every file.
+pub(super) const fn tie(tie: Tie) -> &'static str {
+    match tie {
+        Tie::Vanishes => "vanishes",
+        Tie::Appears => "appears",
+    }
+}
+
+/// Which delays a run took, as titles say it: `typical delays`, `sample 8123`.
+pub(super) fn delays(which: &Which) -> String {
+    match which {
+        Which::Typ | Which::Min | Which::Max => format!("{} delays", which.words()),
+        Which::Sample(_) | Which::Given(_) => which.words(),
+    }
+}
+
+/// Six significant digits of a share, as the nearest float.
+pub(super) fn six(share: f64) -> f64 {
+    format!("{share:.5e}").parse().unwrap_or(share)
+}
+
+/// Three significant digits of a plain number.
+pub(super) fn three(number: f64) -> String {
+    if number == 0.0 || !number.is_finite() {
+        return format!("{number}");
+    }
+    let rounded: f64 = format!("{number:.2e}").parse().unwrap_or(number);
+    let size = rounded.abs();
+    if size < 1e-4 { format!("{rounded:e}") } else { format!("{rounded}") }
+}
+
+/// A share in percent with three significant digits: `1.23 %`.
+pub(super) fn percent(share: f64) -> String {
+    format!("{} %", three(share * 100.0))
+}
+
+/// A count with digits in groups of three: `10,000`.
+pub(super) fn count(number: u64) -> String {
+    let digits = number.to_string();
+    let mut text = String::new();
+    for (i, digit) in digits.chars().enumerate() {
+        if i > 0 && (digits.len() - i).is_multiple_of(3) {
+            text.push(',');
+        }
+        text.push(digit);
+    }
+    text
+}
+
+/// `1 step`, `3 steps`: a count with its noun.
+pub(super) fn many(number: u64, noun: &str) -> String {
+    format!("{} {noun}{}", count(number), if number == 1 { "" } else { "s" })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn numbers_for_people() {
+        assert_eq!(three(0.123_456), "0.123");
+        assert_eq!(three(99.96), "100");
+        assert_eq!(three(0.000_012_345), "1.23e-5");
+        assert_eq!(percent(0.0), "0 %");
+        assert_eq!(percent(0.012_345), "1.23 %");
+        assert_eq!(count(1_234_567), "1,234,567");
+        assert_eq!(count(999), "999");
+        assert_eq!(many(1, "gate"), "1 gate");
+        assert_eq!(six(1.0 / 3.0), 0.333_333);
+    }
+}

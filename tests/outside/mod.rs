@@ -1,0 +1,8 @@
+//! Checks against what others found: published tables, or programs that share no code with ours. Every test names its
+//! source. `[computed]` marks a value from an independent throw-away program, "from memory" a source that was not at
+//! hand, "common practice" what needs none.
+
+mod networks;
+mod random_networks;
+mod small_networks;
+mod stable_states;
