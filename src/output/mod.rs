@@ -7,6 +7,7 @@
 pub mod bundle;
 pub mod charts;
 mod ink;
+pub mod instance;
 pub mod json;
 mod measure;
 pub mod tables;
