@@ -2,6 +2,7 @@
 //! source. `[computed]` marks a value from an independent throw-away program, "from memory" a source that was not at
 //! hand, "common practice" what needs none.
 
+mod large_networks;
 mod networks;
 mod random_networks;
 mod small_networks;
