@@ -1,4 +1,5 @@
 //! The promises to the user, one module each.
 
 mod engine_agrees;
+mod outside;
 mod support;

@@ -91,8 +91,7 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
     };
     if !matches!(scenario.begin, Begin::AtRest { .. }) {
         let opening = RecordedOpening { moments: vec![0], state: slow.nets.clone(), ..RecordedOpening::default() };
-        slow.window =
-            Some(Open { opening, start: 0, settle_from: 0, last: None, at_rest: true, transitions: 0 });
+        slow.window = Some(Open { opening, start: 0, settle_from: 0, last: None, at_rest: true, transitions: 0 });
         for gate in circuit.gates() {
             slow.evaluate(gate);
         }
@@ -398,7 +397,13 @@ impl Slow<'_> {
         let age = self.now - event.since;
         if event.node < self.scenario.circuit.gate_count() && age > 0 {
             let window = self.record.windows.len();
-            self.record.swallowed.push(Swallow { window, at: self.now, gate: event.node, age, delay: event.at - event.since });
+            self.record.swallowed.push(Swallow {
+                window,
+                at: self.now,
+                gate: event.node,
+                age,
+                delay: event.at - event.since,
+            });
         }
     }
 }

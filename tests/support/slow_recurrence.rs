@@ -39,8 +39,7 @@ struct Note {
 impl Block {
     pub fn of(circuit: &Circuit, number: u32) -> Block {
         let gates: Vec<_> = circuit.gates().filter(|gate| circuit.block(*gate) == number).collect();
-        let ends: Vec<usize> =
-            (0..circuit.wire_count()).filter(|w| gates.contains(&circuit.wires()[*w].1)).collect();
+        let ends: Vec<usize> = (0..circuit.wire_count()).filter(|w| gates.contains(&circuit.wires()[*w].1)).collect();
         let mut nodes: Vec<usize> = gates.iter().map(|gate| gate.index()).collect();
         nodes.extend(ends.iter().map(|w| circuit.gate_count() + w));
         let read = |net: &NetId| gates.iter().any(|gate| circuit.pins(*gate).contains(net));
@@ -100,7 +99,8 @@ impl Block {
                 let from = [&[note.at], &note.passes[..]].concat();
                 let lengths = || from.windows(2).map(|pair| pair[1] - pair[0]);
                 let range = (lengths().min().expect("100 of them"), lengths().max().expect("100 of them"));
-                self.recurred = Some(Recurred { at, period: (at - note.at) / 100, range: Some(range), moving: Vec::new() });
+                self.recurred =
+                    Some(Recurred { at, period: (at - note.at) / 100, range: Some(range), moving: Vec::new() });
                 return;
             }
         }
@@ -108,7 +108,8 @@ impl Block {
             while self.next <= self.count {
                 self.next *= 2;
             }
-            self.note = Some(Note { at, values: values(), remaining: remaining(), passes: Vec::new(), moved: Vec::new() });
+            self.note =
+                Some(Note { at, values: values(), remaining: remaining(), passes: Vec::new(), moved: Vec::new() });
         }
     }
 }
