@@ -2,6 +2,8 @@
 //! source. `[computed]` marks a value from an independent throw-away program, "from memory" a source that was not at
 //! hand, "common practice" what needs none.
 
+#![allow(clippy::unwrap_used)] // a test may panic, its helpers too
+
 mod large_networks;
 mod networks;
 mod random_networks;
