@@ -65,6 +65,16 @@ pub(super) const fn tie(tie: Tie) -> &'static str {
     }
 }
 
+/// Letters that XML cannot hold become the replacement sign; line breaks become spaces.
+pub(super) fn clean(text: &str) -> String {
+    let fit = |letter: char| match letter {
+        '\n' | '\r' | '\t' => ' ',
+        letter if letter.is_control() || matches!(letter, '\u{fffe}' | '\u{ffff}') => '\u{fffd}',
+        letter => letter,
+    };
+    text.chars().map(fit).collect()
+}
+
 /// Which delays a run took, as titles say it: `typical delays`, `sample 8123`.
 pub(super) fn delays(which: &Which) -> String {
     match which {

@@ -167,7 +167,7 @@ impl Frame {
             let (top, bottom) = (y + 5.0, y + 5.0 + SWING);
             let own: Vec<&Spot> = spots.iter().filter(|spot| spot.net == Some(*net)).collect();
             let (brackets, rows) = brackets(&own, &axis, left, bottom + 4.0, &mut missing);
-            y += PITCH + rows as f64 * LINE + if rows > 0 { 3.0 } else { 0.0 };
+            y += PITCH + if rows > 0 { rows as f64 * LINE - 2.0 } else { 0.0 };
             let name = cut_middle(&full_name, BODY, left - 8.0 - MARGIN).unwrap_or_else(|| full_name.clone());
             lanes.push(Lane { net: *net, name, full_name, top, bottom, waves, value, is_open, brackets });
         }
