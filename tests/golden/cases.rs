@@ -5,13 +5,13 @@ use std::sync::Arc;
 use stillgate::circuit::{Circuit, Function, GateId, GateSpec, NetId};
 use stillgate::control::Control;
 use stillgate::delay::{DelayModel, DelayRange, Filter};
-use stillgate::engine::{Program, Trace};
+use stillgate::engine::{Change, End, Hit, Program, Trace};
 use stillgate::findings::{Fact, Kind, Measure, Shape, Subject};
 use stillgate::instance::{Instance, Which};
 use stillgate::logic::Bits;
 use stillgate::review::RunReport;
 use stillgate::scenario::{
-    Begin, GlitchFree, Limits, Moment, MomentKind, Never, Place, Plan, Rules, Scenario, Step, Stimulus,
+    Begin, Clock, GlitchFree, Limits, Moment, MomentKind, Never, Place, Plan, Rules, Scenario, Step, Stimulus,
 };
 use stillgate::time::{Span, Time, Unit};
 
@@ -309,4 +309,67 @@ pub fn chain(nets: usize, steps: usize, apart: &str) -> Scenario {
         case = case.after(apart, &format!("{label} {}", step / 2 + 1), &[("level", value)]);
     }
     case.build()
+}
+
+/// Names and labels of 200 letters, and letters that no picture may hold.
+pub fn long_names() -> Scenario {
+    let name = |tail: &str| format!("{}_{tail}", "n".repeat(200));
+    let (a, b, c) = (name("a[0]"), name("a[1]"), name("late"));
+    let d = ["1", "2", "3"];
+    Case::new(&format!("Title\u{1}\n<b>{}</b> & \"more\"", " and on".repeat(30)))
+        .input("x", 0)
+        .input(&a, 0)
+        .gate(&b, Function::Buf, &["x"], d)
+        .gate(&c, Function::Not, &[&b], d)
+        .at("10", &format!("first {}", "label ".repeat(34)), &[("x", 1)])
+        .after("10", "<script>alert(1)</script>", &[("x", 0), (&a, 1)])
+        .build()
+}
+
+/// Goes on with the last window of a ring for this many changes more, as if no recurrence had been found.
+pub fn without_recurrence(scenario: &Scenario, report: &mut RunReport, more: usize) {
+    let trace = &mut report.trace;
+    let period: Vec<_> = trace.changes[trace.changes.len() - 8..].to_vec();
+    let length = ns("16").fs();
+    for round in 1..=(more / 8) as u64 {
+        trace.changes.extend(period.iter().map(|change| Change {
+            at: change.at + Span::from_fs(length * round),
+            ..*change
+        }));
+    }
+    let end = trace.changes.last().unwrap().at;
+    let window = trace.windows.last_mut().unwrap();
+    (window.stop, window.end) = (end, End::Unsettled(Hit::Transitions));
+    trace.end = end;
+    assert!(scenario.circuit.net_count() < 10);
+}
+
+/// A divider with a clock that is too fast for its last stage.
+pub fn clocked() -> Scenario {
+    let d = ["1", "2", "3"];
+    let mut scenario = Case::new("Bell divider")
+        .input("tick", 0)
+        .input("hush", 0)
+        .gate("late", Function::Buf, &["tick"], ["7", "8", "9"])
+        .gate("later", Function::Buf, &["late"], ["7", "8", "9"])
+        .gate("bell", Function::Nor, &["later", "hush"], d)
+        .at("33", "hush", &[("hush", 1)])
+        .build();
+    let exact = |text: &str| DelayRange::exact(ns(text));
+    let mut stimulus = (*scenario.stimulus).clone();
+    stimulus.clocks.push(Clock {
+        net: net(&scenario, "tick"),
+        first: exact("10"),
+        period: exact("24"),
+        high: exact("12"),
+        jitter: Span::ZERO,
+        count: 8,
+        mark: Default::default(),
+    });
+    for edge in 0..16 {
+        let label = format!("tick {} {}", if edge % 2 == 0 { "rise" } else { "fall" }, edge / 2 + 1);
+        stimulus.moments.push(Moment { label, kind: MomentKind::Edge { clock: 0, edge } });
+    }
+    scenario.stimulus = Arc::new(stimulus);
+    scenario
 }
