@@ -1,217 +1,18 @@
 //! Every machine tells the same story as the slow engine, on thousands of random small circuits in which ties are the
 //! rule.
 
-use rand::seq::IndexedRandom;
-use rand::{RngExt, SeedableRng};
-use rand_chacha::ChaCha8Rng;
-use stillgate::circuit::{Expr, Function, NetId};
+use stillgate::circuit::{Function, NetId};
 use stillgate::control::Control;
-use stillgate::delay::{DelayRange, Filter};
+use stillgate::delay::Filter;
 use stillgate::engine::{End, Hit, Program};
-use stillgate::instance::{Instance, Which};
-use stillgate::logic::Bits;
-use stillgate::scenario::{Begin, Bounce, Clock, Mark, Place, Scenario};
+use stillgate::instance::Instance;
+use stillgate::logic::{Bits, Value};
+use stillgate::scenario::{Begin, Place, Scenario};
 
+use crate::support::random_worlds::{Case, Filters, Kind, Lengths, PLAIN, Start, cases};
 use crate::support::recorder::{Record, Recorder};
 use crate::support::slow_engine;
-use crate::support::world::{Gate, World, exact, fs, stable_states};
-
-/// What a batch of random cases is made of.
-#[derive(Clone, Copy, Debug)]
-struct Kind {
-    gates: (usize, usize),
-    filters: Filters,
-    begin: Start,
-    wires: f64,
-    delays: Lengths,
-    steps: (usize, usize),
-    clocks: bool,
-    limits: &'static [u64],
-    rings: bool,
-}
-
-#[derive(Clone, Copy, Debug, PartialEq)]
-enum Filters {
-    Inertial,
-    Transport,
-    Mixed,
-}
-
-#[derive(Clone, Copy, Debug, PartialEq)]
-enum Start {
-    Rest,
-    Random,
-    Unknown,
-}
-
-#[derive(Clone, Copy, Debug)]
-enum Lengths {
-    /// 1 to 4 fs: everything meets everything.
-    Ties,
-    /// Up to 40 fs.
-    Short,
-    /// Up to 100,000 fs: hardly anything meets.
-    Wide,
-}
-
-impl Lengths {
-    fn draw(self, rng: &mut ChaCha8Rng) -> u64 {
-        match self {
-            Lengths::Ties => rng.random_range(1..=4),
-            Lengths::Short => rng.random_range(1..=40),
-            Lengths::Wide => rng.random_range(1..=100_000),
-        }
-    }
-}
-
-fn function(rng: &mut ChaCha8Rng, nets: &[String]) -> (Function, Vec<String>) {
-    let choice = rng.random_range(0..12);
-    if choice >= 10 {
-        // an expression over up to four nets, some of them twice
-        let nets: Vec<&String> = (0..rng.random_range(1..=4)).map(|_| nets.choose(rng).unwrap()).collect();
-        let mut text = String::new();
-        for i in 0..rng.random_range(1..=6) {
-            if i > 0 {
-                text.push_str([" & ", " | ", " ^ "].choose(rng).unwrap());
-            }
-            let (open, close) = [("", ""), ("!", ""), ("!(1 & ", ")")].choose(rng).unwrap();
-            text.push_str(&format!("{open}{}{close}", nets.choose(rng).unwrap()));
-        }
-        let expr = Expr::parse(&text).unwrap();
-        let pins = expr.nets().iter().map(ToString::to_string).collect();
-        return (Function::Expr(expr), pins);
-    }
-    let function = Function::LISTED[choice].clone();
-    let pins = match function {
-        Function::Buf | Function::Not => 1,
-        Function::Mux => 3,
-        Function::Majority => [3, 5].choose(rng).copied().unwrap(),
-        _ => rng.random_range(2..=4),
-    };
-    (function, (0..pins).map(|_| nets.choose(rng).unwrap().clone()).collect())
-}
-
-/// A ring of inverters and buffers with an odd number of inversions, all its gates new; returns a net of it.
-fn ring(world: &mut World, rng: &mut ChaCha8Rng, name: &str, lengths: Lengths) -> String {
-    let gates = rng.random_range(1..=3);
-    for i in 0..gates {
-        let function = if i == 0 { Function::Not } else { Function::Buf };
-        let pin = format!("{name}{}", (i + gates - 1) % gates);
-        let (rise, fall) = (lengths.draw(rng), lengths.draw(rng));
-        world.gate_edges(&format!("{name}{i}"), function, &[&pin], rise, fall);
-    }
-    format!("{name}0")
-}
-
-fn world(rng: &mut ChaCha8Rng, kind: Kind) -> World {
-    let mut world = World::new();
-    for i in 0..rng.random_range(1..=4) {
-        world.input(&format!("i{i}"), rng.random());
-    }
-    let gates = rng.random_range(kind.gates.0..=kind.gates.1);
-    let mut nets: Vec<String> = world.inputs.iter().map(|(name, _)| name.clone()).collect();
-    nets.extend((0..gates).map(|g| format!("g{g}")));
-    for g in 0..gates {
-        let (function, pins) = function(rng, &nets);
-        let one = kind.delays.draw(rng);
-        let other = if rng.random_bool(0.5) { one } else { kind.delays.draw(rng) };
-        let delay = [exact(one), exact(other)];
-        world.gates.push(Gate {
-            name: nets[nets.len() - gates + g].clone(),
-            function,
-            pins,
-            delay,
-            filter: Filter::Inertial,
-        });
-    }
-    if kind.rings {
-        let (a, b) = (ring(&mut world, rng, "a", kind.delays), ring(&mut world, rng, "b", kind.delays));
-        if rng.random_bool(0.7) {
-            let delay = kind.delays.draw(rng);
-            world.gate("c", Function::Xor, &[&a, &b], delay);
-        }
-    }
-    for gate in &mut world.gates {
-        gate.filter = match kind.filters {
-            Filters::Inertial => Filter::Inertial,
-            Filters::Transport => Filter::Transport,
-            Filters::Mixed => *[Filter::Inertial, Filter::Transport].choose(rng).unwrap(),
-        };
-    }
-    for gate in world.gates.clone() {
-        let mut pins = gate.pins.clone();
-        pins.sort();
-        pins.dedup();
-        for pin in pins {
-            if rng.random_bool(kind.wires) {
-                let (rise, fall) = (kind.delays.draw(rng), kind.delays.draw(rng));
-                world.wire(&pin, &gate.name, rise, fall);
-            }
-        }
-    }
-    let clocks = if kind.clocks { rng.random_range(1..=2.min(world.inputs.len())) } else { 0 };
-    clock_and_steps(&mut world, rng, kind, clocks);
-    world.begin = match kind.begin {
-        Start::Rest => Begin::AtRest { named: Vec::new() },
-        Start::Random => Begin::Random,
-        Start::Unknown => Begin::Unknown,
-    };
-    world.limits.transitions = *kind.limits.choose(rng).unwrap();
-    if rng.random_bool(0.1) {
-        world.limits.time = Some(fs(rng.random_range(1..=20) * kind.delays.draw(rng)));
-    }
-    world.plan.seed = rng.random_range(0..1 << 40);
-    world
-}
-
-fn clock_and_steps(world: &mut World, rng: &mut ChaCha8Rng, kind: Kind, clocks: usize) {
-    let lengths = kind.delays;
-    let range = |rng: &mut ChaCha8Rng, least: u64| {
-        DelayRange::between(fs(least), fs(least + if rng.random() { lengths.draw(rng) } else { 0 }))
-    };
-    for c in 0..clocks {
-        let first = if rng.random() { 0 } else { lengths.draw(rng) };
-        let first = range(rng, first);
-        let jitter = rng.random_range(0..=2u64);
-        let high = 2 * jitter + lengths.draw(rng);
-        let high = range(rng, high);
-        let low = 2 * jitter + lengths.draw(rng);
-        let period = range(rng, high.max.fs() + low);
-        let count = rng.random_range(1..=12);
-        let clock =
-            Clock { net: world.net(&format!("i{c}")), first, period, high, jitter: fs(jitter), count, mark: Mark(0) };
-        world.clocks.push((format!("i{c}"), clock));
-    }
-    let free: Vec<String> = world.inputs[clocks..].iter().map(|(name, _)| name.clone()).collect();
-    let (mut by_time, mut earliest, mut skew_before) = (true, 0, 0);
-    for _ in 0..rng.random_range(kind.steps.0..=kind.steps.1) {
-        let wait = if rng.random_bool(0.3) { 0 } else { rng.random_range(0..=4) * lengths.draw(rng) };
-        let place = match rng.random_range(0..4) {
-            0 if by_time => Place::At(exact(earliest + wait)),
-            0 | 1 => Place::Rest(fs(wait)),
-            _ => Place::After(exact(skew_before + wait)),
-        };
-        by_time &= !matches!(place, Place::Rest(_));
-        earliest += skew_before + wait;
-        let mut inputs = free.clone();
-        inputs.retain(|_| rng.random_bool(0.7));
-        let set: Vec<(&str, bool)> = inputs.iter().map(|net| (net.as_str(), rng.random())).collect();
-        world.step(place, &set);
-        skew_before = 0;
-        if rng.random_bool(0.3) {
-            skew_before = lengths.draw(rng);
-            world.steps.last_mut().unwrap().skew = Some(DelayRange::between(fs(0), fs(skew_before)));
-        }
-        earliest += skew_before;
-        if rng.random_bool(0.02) {
-            let bounce = Bounce { lasting: exact(3), pulses: (1, 2) };
-            world.steps.last_mut().unwrap().bounce = Some(bounce);
-        } else if rng.random_bool(0.02) {
-            let pattern = vec![(NetId(0), true)];
-            world.steps.last_mut().unwrap().place = Place::When { pattern, wait: exact(1), timeout: None };
-        }
-    }
-}
+use crate::support::world::{World, fs, stable_states};
 
 /// How often each thing was met: a comparison that never meets it proves nothing.
 #[derive(Debug, Default)]
@@ -240,7 +41,7 @@ impl Met {
                 End::Unsettled(Hit::Time) => &mut self.time,
                 End::Unsettled(_) => &mut self.transitions,
             } += 1;
-            if window.end == End::Settled && window.state.contains(&stillgate::logic::Value::X) {
+            if window.end == End::Settled && window.state.contains(&Value::X) {
                 self.unknown_left += 1;
             }
         }
@@ -337,40 +138,14 @@ fn compare(scenario: &Scenario, rest: &Bits, instance: &Instance, of: &str) -> R
     slow
 }
 
-/// Compares that many random cases of a kind; returns what was met.
-fn agree(cases: u64, kind: Kind) -> Met {
+/// Compares random cases of a kind; returns what was met.
+fn agree(count: u64, kind: Kind) -> Met {
     let mut met = Met::default();
-    let many: u64 = std::env::var("MANY").map_or(3, |m| m.parse().unwrap());
-    for number in 0..cases * many {
-        let mut rng = ChaCha8Rng::seed_from_u64(1);
-        rng.set_stream(number);
-        let world = world(&mut rng, kind);
-        let scenario = world.scenario();
-        let rest = match kind.begin {
-            Start::Rest => {
-                let states = stable_states(&scenario.circuit, &scenario.stimulus.initial);
-                let Some(state) = states.choose(&mut rng) else { continue };
-                state.clone()
-            }
-            _ => Bits::zeros(scenario.circuit.net_count()),
-        };
-        let instance = Instance::of(&scenario, &Which::Sample(rng.random_range(0..1000)));
-        met.count(&compare(&scenario, &rest, &instance, &format!("{kind:?} case {number}")));
+    for Case { name, scenario, rest, instance, .. } in cases(3 * count, kind) {
+        met.count(&compare(&scenario, &rest, &instance, &name));
     }
     met
 }
-
-const PLAIN: Kind = Kind {
-    gates: (2, 9),
-    filters: Filters::Inertial,
-    begin: Start::Rest,
-    wires: 0.0,
-    delays: Lengths::Ties,
-    steps: (1, 6),
-    clocks: false,
-    limits: &[7, 40, 300, 2000],
-    rings: false,
-};
 
 #[test]
 fn inertial_from_rest() {

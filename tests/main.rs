@@ -1,6 +1,8 @@
 //! The promises to the user, one module each; `outside` checks against published sources.
 
+mod draws;
 mod engine_agrees;
+mod engine_properties;
 mod golden;
 mod malformed;
 mod outside;

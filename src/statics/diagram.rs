@@ -116,14 +116,18 @@ pub(super) struct Diagram {
 }
 
 impl Diagram {
+    /// The most nodes that a diagram under this control may have.
+    pub fn budget(control: &Control) -> usize {
+        if control.nodes == 0 { DEFAULT_BUDGET } else { control.nodes.min(GREATEST_BUDGET) }
+    }
+
     /// An empty diagram with the budget and the cancel flag of `control`.
     pub fn new(control: &Control) -> Diagram {
-        let budget = if control.nodes == 0 { DEFAULT_BUDGET } else { control.nodes.min(GREATEST_BUDGET) };
         Diagram {
             nodes: vec![Node { level: BOTTOM, low: Edge::FALSE, high: Edge::FALSE }],
             table: vec![0; 256],
             cache: vec![NOTHING; 256],
-            budget,
+            budget: Diagram::budget(control),
             steps: 0,
             control: control.clone(),
             tasks: Vec::new(),

@@ -113,12 +113,21 @@ impl Product {
         self.parts.iter().all(|part| self.diagram.value(part.root, &value))
     }
 
-    /// The first `limit` vectors that agree with `fixed`, by value of the `search` levels in that order. The levels
-    /// that are neither fixed nor searched must follow from them. Gives the values of the searched levels.
+    /// Does any vector agree with `fixed`?
+    pub fn possible(&self, fixed: &[Option<bool>]) -> bool {
+        self.parts.iter().all(|part| self.diagram.possible(part.root, fixed))
+    }
+
+    /// The first `limit` vectors that agree with `fixed`, by value of the `search` levels in that order: the values of
+    /// these levels. There must be a vector that agrees, as far as parts without searched levels go.
     pub fn first(&self, fixed: &[Option<bool>], search: &[u32], limit: usize) -> Vec<Vec<bool>> {
         let mut found = Vec::new();
         let mut fixed = fixed.to_vec();
-        if limit == 0 || !self.parts.iter().all(|part| self.diagram.possible(part.root, &fixed)) {
+        let mut parts: Vec<u32> = search.iter().map(|level| self.part_of[*level as usize]).collect();
+        parts.sort_unstable();
+        parts.dedup();
+        let possible = |part: &u32| self.diagram.possible(self.parts[*part as usize].root, &fixed);
+        if limit == 0 || !parts.iter().all(possible) {
             return found;
         }
         let can_be = |fixed: &mut [Option<bool>], level: u32, bit: bool| {

@@ -3,11 +3,16 @@
 use super::GaveUp;
 use super::diagram::{Diagram, Edge};
 use super::functions::Functions;
-use super::order::variable_order;
+use super::order::{depth_first, drawn_together, with_inputs};
 use super::product::Product;
 use crate::circuit::{Circuit, NetId, NetSet};
 use crate::control::Control;
 use crate::logic::{Bits, State, Value};
+
+/// The part of the budget that the first order may use.
+const FIRST_TRY: usize = 64;
+/// Nodes that it may use in any case.
+const LEAST_TRY: usize = 1 << 14;
 
 /// Marks a net that is no variable.
 const NO_LEVEL: u32 = u32::MAX;
@@ -25,7 +30,27 @@ impl Relation {
     /// known to follow from the others.
     pub fn of(circuit: &Circuit, known: &State, held: &[NetId], control: &Control) -> Result<Relation, GaveUp> {
         let open = |net: NetId| known.get(net.index()) == Value::X;
-        let order = variable_order(circuit, open);
+        let plain = depth_first(circuit, open);
+        // mostly the plain order does with little; where it does not, the other is often far better
+        let budget = Diagram::budget(control);
+        let first_try = Control { nodes: (budget / FIRST_TRY).max(LEAST_TRY).min(budget), ..control.clone() };
+        match Relation::in_order(circuit, known, held, &plain, &first_try) {
+            Err(GaveUp::Budget { .. }) => {}
+            done => return done,
+        }
+        let better = drawn_together(circuit, open, &plain).unwrap_or(plain);
+        Relation::in_order(circuit, known, held, &better, control)
+    }
+
+    fn in_order(
+        circuit: &Circuit,
+        known: &State,
+        held: &[NetId],
+        feedback: &[NetId],
+        control: &Control,
+    ) -> Result<Relation, GaveUp> {
+        let open = |net: NetId| known.get(net.index()) == Value::X;
+        let order = with_inputs(circuit, open, feedback);
         let mut level = vec![NO_LEVEL; circuit.net_count()];
         for (at, net) in order.iter().enumerate() {
             level[net.index()] = at as u32;
@@ -33,8 +58,7 @@ impl Relation {
         let mut diagram = Diagram::new(control);
         let leaves = leaves(&mut diagram, known, &level)?;
         let mut functions = Functions::new(circuit, leaves);
-        let free_feedback = circuit.feedback().iter().copied().filter(|net| open(*net));
-        let bound: Vec<NetId> = free_feedback.chain(held.iter().copied()).collect();
+        let bound: Vec<NetId> = feedback.iter().chain(held).copied().collect();
         let gates = bound.iter().filter_map(|net| circuit.driver(*net));
         let sources = gates.clone().flat_map(|gate| circuit.sources(gate)).map(|source| source.0);
         functions.prepare(&mut diagram, sources)?;

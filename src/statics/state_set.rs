@@ -104,6 +104,9 @@ impl<'a> StateSet<'a> {
         for (net, bit) in self.circuit.inputs().zip(inputs) {
             fixed[self.level(net) as usize] = Some(*bit);
         }
+        if !product.possible(&fixed) {
+            return (Vec::new(), false);
+        }
         let feedback = self.circuit.feedback();
         let asked = limit.saturating_add(1);
         let mut found = product.first(&fixed, &self.levels(feedback), asked);
@@ -140,13 +143,14 @@ impl<'a> StateSet<'a> {
         let product = &self.relation.product;
         let is_input = |level: u32| self.circuit.is_input(self.relation.order[level as usize]);
         let (mut some, mut one) = (BigUint::from(1u8), BigUint::from(1u8));
+        let unfixed = product.unfixed();
         for part in &product.parts {
             let mut diagram = Diagram::new(&self.control);
             let found = multiplicity(&product.diagram, part.root, &part.levels, is_input, &mut diagram)?;
             let single = diagram.and(found.some, !found.several)?;
             let outer: Vec<u32> = part.levels.iter().copied().filter(|level| is_input(*level)).collect();
-            some *= diagram.count(found.some, &outer, &product.unfixed());
-            one *= diagram.count(single, &outer, &product.unfixed());
+            some *= diagram.count(found.some, &outer, &unfixed);
+            one *= diagram.count(single, &outer, &unfixed);
         }
         let all = BigUint::from(1u8) << self.circuit.input_count();
         Ok(VectorCounts { none: all - &some, several: some - &one, one })

@@ -10,7 +10,7 @@ use super::multiplicity::multiplicity;
 use super::product::Part;
 use super::relation::complete;
 use super::state_set::StateSet;
-use crate::circuit::NetId;
+use crate::circuit::{GateId, NetId};
 use crate::logic::Bits;
 
 /// Input vectors that are tried for the number of states that must be told apart, where not all can be.
@@ -46,36 +46,44 @@ impl StateSet<'_> {
     /// net order. Empty if no input vector has several stable states.
     ///
     /// Exact where at most `limit` stable states need looking at, in the whole circuit or in each of its independent
-    /// parts. Elsewhere feedback nets are left out one by one as long as the others still tell the states apart; that is
-    /// marked as not exact unless counting shows that fewer cannot do.
+    /// parts (the effort grows with the square of the limit; some hundreds to a few thousand are sensible). Elsewhere
+    /// feedback nets are left out one by one as long as the others still tell the states apart; that is marked as not
+    /// exact unless counting shows that fewer cannot do.
     ///
     /// Errors: see [`StateSet::of`].
     pub fn state_variables(&self, limit: usize) -> Result<StateVariables, GaveUp> {
-        if self.count() <= BigUint::from(limit) {
-            let gates: Vec<NetId> = self.circuit.gates().map(|gate| self.circuit.net_of(gate)).collect();
-            let needed = self.listed(&self.relation.order, &gates, limit);
+        let count = self.count();
+        if count == BigUint::ZERO {
+            return Ok(StateVariables { nets: Vec::new(), exact: true });
+        }
+        // with all variables at 0, the nets that depend on none of them are right
+        let mut constants = Bits::zeros(self.circuit.net_count());
+        complete(self.circuit, &mut constants);
+        if count <= BigUint::from(limit) {
+            let needed = self.listed(&self.relation.order, self.circuit.evaluation_order(), &constants, limit);
             return Ok(StateVariables { nets: needed.nets, exact: needed.exact });
         }
         let rests = self.rests_on();
-        let mut nets_of: Vec<Vec<NetId>> = vec![Vec::new(); self.relation.product.parts.len()];
+        let product = &self.relation.product;
+        let mut gates_of: Vec<Vec<GateId>> = vec![Vec::new(); product.parts.len()];
         let mut tied = false;
-        for net in self.circuit.gates().map(|gate| self.circuit.net_of(gate)) {
-            match rests[net.index()] {
-                Rests::On(part) => nets_of[part as usize].push(net),
+        for gate in self.circuit.evaluation_order() {
+            match rests[self.circuit.net_of(*gate).index()] {
+                Rests::On(part) => gates_of[part as usize].push(*gate),
                 Rests::OnSeveral => tied = true,
                 Rests::OnNothing => {}
             }
         }
         let mut all = Needed { nets: Vec::new(), exact: true, most: BigUint::from(1u8) };
-        for (part, nets) in self.relation.product.parts.iter().zip(&nets_of) {
+        let unfixed = product.unfixed();
+        for (part, gates) in product.parts.iter().zip(&gates_of) {
             let variables: Vec<NetId> = part.levels.iter().map(|level| self.relation.order[*level as usize]).collect();
             if variables.iter().all(|net| self.circuit.is_input(*net)) {
                 continue;
             }
-            let product = &self.relation.product;
-            let count = product.diagram.count(part.root, &part.levels, &product.unfixed());
+            let count = product.diagram.count(part.root, &part.levels, &unfixed);
             let needed = if count <= BigUint::from(limit) {
-                self.listed(&variables, nets, limit)
+                self.listed(&variables, gates, &constants, limit)
             } else {
                 self.thinned_out(part, &variables)?
             };
@@ -89,48 +97,40 @@ impl StateSet<'_> {
         Ok(StateVariables { nets: all.nets, exact })
     }
 
-    /// Looks at every stable state of some variables (those of a part, or all) and the nets that depend on them alone.
-    fn listed(&self, variables: &[NetId], candidates: &[NetId], limit: usize) -> Needed {
-        let (mut inputs, feedback): (Vec<NetId>, Vec<NetId>) =
+    /// Looks at every stable state of some variables (those of a part, or all) and the gates that depend on them alone,
+    /// which are given in evaluation order.
+    fn listed(&self, variables: &[NetId], gates: &[GateId], constants: &Bits, limit: usize) -> Needed {
+        let (mut searched, feedback): (Vec<NetId>, Vec<NetId>) =
             variables.iter().partition(|net| self.circuit.is_input(**net));
-        let input_count = inputs.len();
-        inputs.extend(feedback);
-        let search = self.levels(&inputs);
+        let inputs = searched.len();
+        searched.extend(feedback);
+        let mut candidates: Vec<NetId> = gates.iter().map(|gate| self.circuit.net_of(*gate)).collect();
+        candidates.sort_unstable();
         let product = &self.relation.product;
-        let found = product.first(&product.unfixed(), &search, limit);
+        let found = product.first(&product.unfixed(), &self.levels(&searched), limit);
         let mut vectors: Vec<Vec<Bits>> = Vec::new();
         let mut last: Option<&[bool]> = None;
+        let mut state = constants.clone();
         for values in &found {
-            let mut state = Bits::zeros(self.circuit.net_count());
-            for (net, bit) in inputs.iter().zip(values) {
+            for (net, bit) in searched.iter().zip(values) {
                 state.set(net.index(), *bit);
             }
-            complete(self.circuit, &mut state);
+            for gate in gates {
+                // feedback nets come out as they are: the state is stable
+                let value = self.circuit.wants(*gate, |source| state.get(source.index()));
+                state.set(self.circuit.net_of(*gate).index(), value);
+            }
             let shown = Bits::of(candidates.iter().map(|net| state.get(net.index())));
-            let vector = &values[..input_count];
+            let vector = &values[..inputs];
             match vectors.last_mut().filter(|_| last == Some(vector)) {
                 Some(states) => states.push(shown),
                 None => vectors.push(vec![shown]),
             }
             last = Some(vector);
         }
-        let most = vectors.iter().map(Vec::len).max().unwrap_or(1).max(1);
+        let most = vectors.iter().map(Vec::len).max().unwrap_or(1);
         let columns = different_columns(&vectors, candidates.len());
-        let mut differences: FxHashSet<Bits> = FxHashSet::default();
-        for states in &vectors {
-            let states: Vec<Bits> =
-                states.iter().map(|state| Bits::of(columns.iter().map(|column| state.get(*column)))).collect();
-            for (at, a) in states.iter().enumerate() {
-                for b in &states[at + 1..] {
-                    let mut differ = a.clone();
-                    differ.words_mut().iter_mut().zip(b.words()).for_each(|(a, b)| *a ^= b);
-                    differences.insert(differ);
-                }
-            }
-        }
-        // k nets tell at most 2^k states apart
-        let bound = most.next_power_of_two().trailing_zeros() as usize;
-        let (chosen, exact) = fewest(differences, columns.len(), bound);
+        let (chosen, exact) = fewest(differences(&vectors, &columns), columns.len(), digits(most));
         let nets = chosen.into_iter().map(|column| candidates[columns[column]]).collect();
         Needed { nets, exact, most: most.into() }
     }
@@ -230,26 +230,39 @@ impl StateSet<'_> {
     }
 }
 
+/// How many nets it takes to tell so many states apart, at least: k nets tell at most 2^k.
+fn digits(states: usize) -> usize {
+    states.next_power_of_two().trailing_zeros() as usize
+}
+
+/// For every two states of one input vector the columns (by place in `columns`) in which they differ.
+fn differences(vectors: &[Vec<Bits>], columns: &[usize]) -> FxHashSet<Bits> {
+    let mut differences = FxHashSet::default();
+    for states in vectors {
+        let states: Vec<Bits> =
+            states.iter().map(|state| Bits::of(columns.iter().map(|column| state.get(*column)))).collect();
+        for (at, a) in states.iter().enumerate() {
+            for b in &states[at + 1..] {
+                let mut differ = a.clone();
+                differ.words_mut().iter_mut().zip(b.words()).for_each(|(a, b)| *a ^= b);
+                differences.insert(differ);
+            }
+        }
+    }
+    differences
+}
+
 /// The columns that tell anything apart, the first of those that tell the same apart.
 fn different_columns(vectors: &[Vec<Bits>], columns: usize) -> Vec<usize> {
     let states: usize = vectors.iter().map(Vec::len).sum();
-    let mut known: FxHashMap<Bits, usize> = FxHashMap::default();
-    known.insert(Bits::zeros(states), usize::MAX);
-    let mut kept = Vec::new();
-    for column in 0..columns {
+    let mut known: FxHashSet<Bits> = FxHashSet::default();
+    known.insert(Bits::zeros(states));
+    let tells = |column: usize| {
         // against the first state of each vector
-        let mut pattern = Bits::zeros(states);
-        let mut at = 0;
-        for vector in vectors {
-            for state in vector {
-                pattern.set(at, state.get(column) != vector[0].get(column));
-                at += 1;
-            }
-        }
-        if !known.contains_key(&pattern) {
-            known.insert(pattern, column);
-            kept.push(column);
-        }
-    }
-    kept
+        let against = |vector: &Vec<Bits>, state: &Bits| state.get(column) != vector[0].get(column);
+        let bits: Vec<bool> =
+            vectors.iter().flat_map(|vector| vector.iter().map(move |state| against(vector, state))).collect();
+        Bits::of(bits.into_iter())
+    };
+    (0..columns).filter(|column| known.insert(tells(*column))).collect()
 }

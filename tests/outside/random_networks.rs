@@ -106,7 +106,7 @@ fn the_start_state_against_trying_everything() {
 }
 
 /// The number of stable states by the other library: one relation over inputs and feedback nets, functions by definition.
-fn count_elsewhere(circuit: &Circuit) -> BigUint {
+pub fn count_elsewhere(circuit: &Circuit) -> BigUint {
     let variables: Vec<NetId> = circuit.inputs().chain(circuit.feedback().iter().copied()).collect();
     let space = BddVariableSet::new_anonymous(variables.len() as u16);
     let mut of: Vec<Option<Bdd>> = vec![None; circuit.net_count()];

@@ -2,7 +2,8 @@
 
 use stillgate::circuit::{Circuit, Function, GateSpec, NetId};
 use stillgate::control::Control;
-use stillgate::statics::StateSet;
+use stillgate::logic::{Bits, State, Value};
+use stillgate::statics::{StateSet, is_stable};
 
 use super::networks::{letters, stable_by_trying, values};
 
@@ -59,6 +60,14 @@ fn check_views(circuit: &Circuit) {
     let all = || want.iter().map(|state| letters(state)).collect::<Vec<_>>().join(" ");
     let set = StateSet::of(circuit, &Control::default()).unwrap();
     let pick = |state: &[bool], nets: &[NetId]| nets.iter().map(|net| state[net.index()]).collect::<Vec<bool>>();
+
+    for row in 0..1u64 << circuit.net_count() {
+        let values: Vec<bool> = circuit.nets().map(|net| row >> net.0 & 1 == 1).collect();
+        let mut state = State::known(Bits::of(values.iter().copied()));
+        assert_eq!(is_stable(circuit, &state), want.contains(&values), "{} of {}", letters(&values), all());
+        state.set(circuit.net_count() - 1, Value::X);
+        assert!(!is_stable(circuit, &state), "X is never stable");
+    }
 
     let rows = set.rows(1000);
     assert!(!rows.truncated);
@@ -124,9 +133,11 @@ fn all_networks_of_one_and_two_gates() {
 
 #[test]
 fn all_networks_of_three_gates() {
-    for inputs in 0..=2 {
-        every_network(inputs, 3, &[Function::Nand, Function::Nor, Function::Xor], &mut check_states);
+    for inputs in 0..=1 {
+        every_network(inputs, 3, &ALL, &mut check_states);
     }
+    // the other three are the complements
+    every_network(2, 3, &[Function::Nand, Function::Nor, Function::Xor], &mut check_states);
 }
 
 #[test]
