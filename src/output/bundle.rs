@@ -60,7 +60,8 @@ pub enum WriteError {
 }
 
 impl Bundle {
-    fn add(&mut self, name: &str, text: String) {
+    /// Adds a file of text.
+    pub fn add(&mut self, name: &str, text: String) {
         self.files.push(File { name: name.to_string(), bytes: text.into_bytes() });
     }
 

@@ -20,7 +20,7 @@ pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
 }
 
 /// The verdict in one sentence, and its reasons.
-fn verdict(paper: &mut Paper, verdict: &Verdict) {
+pub(super) fn verdict(paper: &mut Paper, verdict: &Verdict) {
     let (words, sentence) = (verdict.call.words(), verdict.sentence.trim());
     let sentence = match sentence.to_lowercase().starts_with(words) {
         true => sentence.to_string(),
