@@ -335,10 +335,9 @@ pub fn without_recurrence(scenario: &Scenario, report: &mut RunReport, more: usi
     let period: Vec<_> = trace.changes[trace.changes.len() - 8..].to_vec();
     let length = ns("16").fs();
     for round in 1..=(more / 8) as u64 {
-        trace.changes.extend(period.iter().map(|change| Change {
-            at: change.at + Span::from_fs(length * round),
-            ..*change
-        }));
+        trace
+            .changes
+            .extend(period.iter().map(|change| Change { at: change.at + Span::from_fs(length * round), ..*change }));
     }
     let end = trace.changes.last().unwrap().at;
     let window = trace.windows.last_mut().unwrap();

@@ -34,8 +34,11 @@ pub(super) fn verdict(paper: &mut Paper, verdict: &Verdict) {
         Call::Proved | Call::NoFailureFound => Tone::Strong,
     };
     paper.say(0, tone, &format!("{capital}{}", letters.as_str()));
-    for reason in verdict.reasons.iter().take(REASONS) {
-        paper.item(Tone::Plain, reason);
+    // a single reason is in the sentence already
+    if verdict.reasons.len() > 1 {
+        for reason in verdict.reasons.iter().take(REASONS) {
+            paper.item(Tone::Plain, reason);
+        }
     }
     super::more(paper, verdict.reasons.len().saturating_sub(REASONS), "result.json");
 }
