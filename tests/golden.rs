@@ -11,8 +11,8 @@ use cases::*;
 use stillgate::circuit::Function;
 use stillgate::findings::{Asked, Shape};
 use stillgate::instance::Which;
-use stillgate::output::waves::{self, Picture};
 use stillgate::output::text::{self, Page, Style};
+use stillgate::output::waves::{self, Picture};
 use stillgate::output::{bundle, charts, json, tables};
 use stillgate::review::RunReport;
 use stillgate::scenario::Scenario;
@@ -268,7 +268,7 @@ fn texts() {
     let colour = Page { style: Style::Ansi, ..page };
     golden("check.txt", &text::check(&scenario, &page));
     golden("states.txt", &text::states(&scenario, &review.states, &page));
-    golden("sweep.txt", &text::sweep(&scenario, &review.asked, &review.sweep, &page));
+    golden("sweep.txt", &text::sweep(&scenario, &review.asked, &review.sweep, &review.verdict, &page));
     golden("review.txt", &text::review(&scenario, &review, &page));
     golden("review-60.txt", &text::review(&scenario, &review, &narrow));
     golden("review-colour.txt", &text::review(&scenario, &review, &colour));

@@ -1,3 +1,9 @@
-//! Promises to the user, one module a promise.
+//! The promises to the user, one module each; `outside` checks against published sources.
 
+mod draws;
+mod engine_agrees;
+mod engine_properties;
 mod golden;
+mod malformed;
+mod outside;
+mod support;

@@ -12,7 +12,7 @@ use super::agenda::{Agenda, Due};
 use super::observer::{Closing, End, Finish, Hit, Observer, Opening};
 use super::plan::{Kind, Plan};
 use super::queue::Queue;
-use super::recurrence::Recurrence;
+use super::recurrence::{Recurred, Recurrence, Rest};
 use crate::circuit::{GateId, NetId, WireId};
 use crate::control::Control;
 use crate::instance::Instance;
@@ -237,14 +237,21 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
                 (None, Some(at)) => at,
                 (Some((at, _)), Some(other)) => at.min(other),
             };
-            if at >= Time::END.fs() {
-                break End::Unsettled(Hit::Longest);
-            }
             if let (Some(limit), Some(window)) = (plan.limits.time, open)
                 && (top.is_some() || self.agenda.is_moving())
                 && at > (window.start + limit).fs()
+                && window.start + limit < Time::END
             {
+                // nothing happens up to the limit, so this far it has been looked at
+                self.now = (window.start + limit).fs();
                 break End::Unsettled(Hit::Time);
+            }
+            if at >= Time::END.fs() {
+                break if top.is_some() || self.agenda.is_moving() {
+                    End::Unsettled(Hit::Longest)
+                } else {
+                    End::Settled
+                };
             }
             if outside == Some(at) {
                 self.outside(plan, instance, at, quiet_since, &mut open, observer);
@@ -540,7 +547,7 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             began_at_rest: window.began_at_rest,
             end,
             moving: match end {
-                End::Oscillating { .. } => self.recurrence.first().map_or(NOTHING, |found| &found.moving),
+                End::Oscillating { .. } => self.first_recurred().map_or(NOTHING, |found| &found.moving),
                 _ => NOTHING,
             },
             transitions: self.transitions,
@@ -562,8 +569,13 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         self.queue.nodes().all(|node| self.recurrence.has(node))
     }
 
+    /// The block at work that recurred first.
+    fn first_recurred(&self) -> Option<&Recurred> {
+        self.recurrence.first(|| self.queue.nodes())
+    }
+
     fn oscillating(&self) -> End {
-        match self.recurrence.first() {
+        match self.first_recurred() {
             Some(found) => End::Oscillating { period: found.period, range: found.range },
             None => End::Cut,
         }
@@ -572,7 +584,7 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
     #[cold]
     fn look_for_recurrence(&mut self, plan: &Plan) {
         let (nodes, later, now) = (&self.nodes, &self.later, self.now);
-        let pending = |index: u32, into: &mut Vec<super::recurrence::Rest>| {
+        let pending = |index: u32, into: &mut Vec<Rest>| {
             let node = &nodes[index as usize];
             if P::MANY && node.kind.is_listed() {
                 into.extend(later[index as usize].iter().map(|event| (index, event.0 - now, event.1.value())));

@@ -24,6 +24,7 @@ use crate::control::Control;
 use crate::instance::Instance;
 use crate::logic::{Bits, State};
 use crate::scenario::{Begin, Scenario};
+use crate::statics::{self, NoRest};
 
 /// Nodes up to which pending events are kept in a sorted list.
 const LIST_NODES: usize = 96;
@@ -36,6 +37,19 @@ pub struct Program {
 }
 
 impl Program {
+    /// A program for a scenario; if it begins at rest, its start state is found.
+    ///
+    /// Errors: there is no stable state to begin in, or more than one; see [`NoRest`].
+    pub fn new(scenario: &Scenario, control: &Control) -> Result<Program, NoRest> {
+        match &scenario.begin {
+            Begin::AtRest { named } => {
+                let rest = statics::rest(&scenario.circuit, &scenario.stimulus.initial, named, control)?;
+                Ok(Program::with_rest(scenario, &rest))
+            }
+            Begin::Random | Begin::Unknown => Ok(Program::with_rest(scenario, &Bits::default())),
+        }
+    }
+
     /// A program that begins at rest in this stable state (all nets), if the scenario begins at rest.
     pub fn with_rest(scenario: &Scenario, rest: &Bits) -> Program {
         Program { plan: Arc::new(Plan::new(scenario, Some(rest))), ternary: scenario.begin == Begin::Unknown }

@@ -199,7 +199,9 @@ impl Recurrence {
         net_of: &impl Fn(u32) -> NetId,
     ) {
         self.batch += 1;
-        let touched = std::mem::take(&mut self.touched);
+        let mut touched = std::mem::take(&mut self.touched);
+        // of blocks that recur in one batch the lower number counts as the first
+        touched.sort_unstable();
         for block in &touched {
             self.look(*block, now, value, pending, net_of);
         }
@@ -288,9 +290,10 @@ impl Recurrence {
         self.recurred[self.block_of[node as usize] as usize]
     }
 
-    /// The block that recurred first, of those that still do.
-    pub(super) fn first(&self) -> Option<&Recurred> {
-        self.found.first().map(|(_, recurred)| recurred)
+    /// The block that recurred first, of those of these nodes: a block that never was exactly periodic may have died.
+    pub(super) fn first<I: Iterator<Item = u32>>(&self, at_work: impl Fn() -> I) -> Option<&Recurred> {
+        let works = |block: u32| at_work().any(|node| self.block_of[node as usize] == block);
+        self.found.iter().find(|(block, _)| works(*block)).map(|(_, recurred)| recurred)
     }
 }
 

@@ -4,7 +4,10 @@
 //! known from the scenario, whatever the length of a run.
 
 mod asked;
+mod judge;
+mod pulses;
 mod words;
 
 pub use asked::{Asked, Pattern, Question, RuleKey};
+pub use judge::{Judge, Match, Seen, Sink, matches, matches_any};
 pub use words::{Fact, Kind, Measure, Reason, Shape, Subject};

@@ -60,7 +60,8 @@ pub enum WriteError {
 }
 
 impl Bundle {
-    fn add(&mut self, name: &str, text: String) {
+    /// Adds a text under a file name.
+    pub fn add(&mut self, name: &str, text: String) {
         self.files.push(File { name: name.to_string(), bytes: text.into_bytes() });
     }
 
@@ -127,7 +128,9 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     let all = review.sweep.findings.len();
     if shown.len() < all {
         let (some, all) = (words::count(shown.len() as u64), words::many(all as u64, "finding"));
-        bundle.notes.push(format!("{some} of {all} have a picture; run --delays sample:N draws any other (see findings.csv)."));
+        bundle
+            .notes
+            .push(format!("{some} of {all} have a picture; run --delays sample:N draws any other (see findings.csv)."));
     }
     let sweep = of_sweep(scenario, &review.asked, &review.sweep);
     bundle.files.extend(sweep.files);
@@ -191,7 +194,8 @@ pub fn write(folder: &Path, files: &[File]) -> Result<(), WriteError> {
     fs::create_dir_all(folder).map_err(|source| WriteError::Folder { folder: folder.to_path_buf(), source })?;
     let beside = |file: &File| folder.join(format!(".{}.part", file.name));
     let done = files.iter().try_for_each(|file| {
-        fs::write(beside(file), &file.bytes).map_err(|source| WriteError::File { file: folder.join(&file.name), source })
+        fs::write(beside(file), &file.bytes)
+            .map_err(|source| WriteError::File { file: folder.join(&file.name), source })
     });
     let done = done.and_then(|()| {
         files.iter().try_for_each(|file| {

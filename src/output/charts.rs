@@ -55,7 +55,7 @@ fn draw(
     root.fill(&WHITE)?;
     let draws = words::count(report.samples);
     let title = words::clean(&format!("{}: settling time (Monte Carlo, {draws} draws)", scenario.title));
-    let title = cut_end(&title, 14.0, 2.0 * f64::from(PANEL.0) - 24.0).unwrap_or(title);
+    let title = cut_end(&title, 14.0, (2.0 * f64::from(PANEL.0) - 24.0) / 1.15).unwrap_or(title);
     let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
     root.draw(&Text::new(title, (12, 8), bold))?;
     for (i, (window, settling)) in shown.iter().enumerate() {
@@ -126,10 +126,8 @@ fn panel(area: &Area<'_>, scenario: &Scenario, window: &WindowReport, settling: 
     let origin = area.get_base_pixel();
     let place = |at: Span| chart.backend_coord(&(value(at), 0.0));
     let bottom = place(Span::ZERO).1 - origin.1;
-    let boxes: Vec<(f64, f64)> = marks
-        .iter()
-        .map(|mark| (f64::from(place(mark.at).0 - origin.0), width(&mark.label, ink::SMALL)))
-        .collect();
+    let boxes: Vec<(f64, f64)> =
+        marks.iter().map(|mark| (f64::from(place(mark.at).0 - origin.0), width(&mark.label, ink::SMALL))).collect();
     for (mark, spot) in marks.iter().zip(spots(&boxes, f64::from(PANEL.0))) {
         let x = place(mark.at).0 - origin.0;
         let y = 20 + 14 * spot.row as i32;
@@ -168,7 +166,8 @@ fn spots(lines: &[(f64, f64)], room: f64) -> Vec<Spot> {
         for (spot, (x, wide)) in tried.iter().zip(lines) {
             let (from, to) = if spot.leftwards { (x - 5.0 - wide, x - 4.0) } else { (x + 4.0, x + 5.0 + wide) };
             let outside = from < 4.0 || to > room - 4.0;
-            let passing = tried.iter().zip(lines).filter(|(it, line)| it.row < spot.row && from < line.0 && line.0 < to);
+            let passing =
+                tried.iter().zip(lines).filter(|(it, line)| it.row < spot.row && from < line.0 && line.0 < to);
             cost += 4 * passing.count() + if outside { 20 } else { usize::from(spot.leftwards) };
         }
         if cost < best.0 {

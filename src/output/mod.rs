@@ -8,6 +8,7 @@ mod assumptions;
 pub mod bundle;
 pub mod charts;
 mod ink;
+pub mod instance;
 pub mod json;
 mod measure;
 pub mod tables;

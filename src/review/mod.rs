@@ -1,7 +1,117 @@
-//! The views put together: runs, states and sweep of one scenario, and the verdict.
-//!
-//! Plain data; nothing is drawn here.
+//! The views put together: runs, states and sweep of one scenario, the checks of the views against each other, and the
+//! verdict. Plain data; nothing is drawn here.
 
 mod report;
+mod single;
+mod verdict;
+
+use std::collections::BTreeSet;
 
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
+pub use single::{run_one, states};
+pub use verdict::{grouped, verdict};
+
+use crate::circuit::NetId;
+use crate::control::Control;
+use crate::engine::{End, Program};
+use crate::findings::{Asked, Kind};
+use crate::instance::Which;
+use crate::scenario::Scenario;
+use crate::statics;
+use crate::sweep::{SweepReport, conclude, run_samples};
+
+/// Failing cases that a review shows as pictures, worst findings first.
+const SHOWN: usize = 12;
+
+/// Why a review came to no end.
+#[derive(Clone, Debug, PartialEq, Eq, thiserror::Error)]
+pub enum ReviewError {
+    /// Two views contradict each other: a defect of the program.
+    #[error("{0}")]
+    Contradiction(String),
+    /// The control cancelled it before anything could be said.
+    #[error("interrupted")]
+    Cancelled,
+}
+
+/// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
+/// settled state is a stable state. A cancelled sweep concludes from what was complete.
+pub fn sweep(
+    scenario: &Scenario,
+    program: &Program,
+    asked: &Asked,
+    threads: usize,
+    control: &Control,
+) -> Result<SweepReport, ReviewError> {
+    let samples = if scenario.cannot_run { 0 } else { scenario.plan.samples };
+    let tally = run_samples(scenario, program, asked, 0..samples, threads, control);
+    let report = conclude(scenario, asked, &tally);
+    for window in &report.windows {
+        for outcome in window.outcomes.iter().filter(|outcome| !outcome.state.has_unknown()) {
+            if !statics::is_stable(&scenario.circuit, &outcome.state) {
+                let label = &scenario.stimulus.moments[window.moment as usize].label;
+                return Err(ReviewError::Contradiction(format!(
+                    "after \"{label}\" sample {} settles in a state that is not stable",
+                    outcome.first
+                )));
+            }
+        }
+    }
+    Ok(report)
+}
+
+/// The main job: stable states, typical run, sweep, failing cases, verdict.
+///
+/// Every failing case is run again by itself and must show what the sweep found.
+pub fn review(
+    scenario: &Scenario,
+    program: &Program,
+    threads: usize,
+    control: &Control,
+) -> Result<Review, ReviewError> {
+    let asked = Asked::of(scenario);
+    let states = states(&scenario.circuit, control);
+    let typical = match scenario.cannot_run {
+        true => None,
+        false => Some(run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?),
+    };
+    let sweep = sweep(scenario, program, &asked, threads, control)?;
+    let mut shown = Vec::new();
+    for index in to_show(&sweep) {
+        let finding = &sweep.findings[index];
+        let Some(sample) = finding.worst_sample.or(finding.sample) else { continue };
+        let Some(run) = run_one(scenario, program, &asked, Which::Sample(sample), control) else { continue };
+        let race = matches!(finding.subject.kind, Kind::CriticalRace | Kind::NonCriticalRace);
+        if !race && !run.facts.iter().any(|fact| fact.subject == finding.subject) {
+            let kind = finding.subject.kind.word();
+            return Err(ReviewError::Contradiction(format!("sample {sample} run alone does not show its {kind}")));
+        }
+        shown.push((index, run));
+    }
+    let verdict = verdict(scenario, &sweep);
+    Ok(Review { asked, states, typical, sweep, shown, verdict })
+}
+
+/// The findings whose failing case is shown: rule breakers first, one a kind and net before more of the same.
+fn to_show(sweep: &SweepReport) -> Vec<usize> {
+    let mut first = Vec::new();
+    let mut more = Vec::new();
+    let mut seen: BTreeSet<(Kind, Option<NetId>)> = BTreeSet::new();
+    for (index, finding) in sweep.findings.iter().enumerate() {
+        let new = seen.insert((finding.subject.kind, finding.subject.net));
+        if finding.breaks_rule {
+            if new { first.push(index) } else { more.push(index) }
+        } else if new && !matches!(finding.subject.kind, Kind::NonCriticalRace) {
+            more.push(index);
+        }
+    }
+    first.append(&mut more);
+    first.truncate(SHOWN);
+    first.sort_unstable();
+    first
+}
+
+/// Did the last window of a run oscillate or hit a limit, so that later steps never came?
+pub fn ended_early(run: &RunReport) -> Option<End> {
+    run.trace.windows.last().map(|window| window.end).filter(|end| !matches!(end, End::Settled | End::Cut))
+}

@@ -122,11 +122,8 @@ impl Case {
             clocks: Vec::new(),
             moments,
         };
-        let outputs: Vec<NetId> = circuit
-            .gates()
-            .map(|gate| circuit.net_of(gate))
-            .filter(|net| circuit.readers(*net).is_empty())
-            .collect();
+        let outputs: Vec<NetId> =
+            circuit.gates().map(|gate| circuit.net_of(gate)).filter(|net| circuit.readers(*net).is_empty()).collect();
         Scenario {
             title: self.title,
             unit: Unit::Ns,
@@ -179,7 +176,13 @@ pub fn net(scenario: &Scenario, name: &str) -> NetId {
 /// A glitch of this net as wide as the place.
 pub fn glitch(net: NetId, shape: Shape, moment: u32, from: &str, to: &str) -> Fact {
     Fact {
-        subject: Subject { kind: Kind::Glitch, shape: Some(shape), question: None, net: Some(net), moment: Some(moment) },
+        subject: Subject {
+            kind: Kind::Glitch,
+            shape: Some(shape),
+            question: None,
+            net: Some(net),
+            moment: Some(moment),
+        },
         breaks_rule: true,
         measure: Some(Measure::long(at(to).since(at(from)))),
         place: Some((at(from), at(to))),
@@ -332,10 +335,9 @@ pub fn without_recurrence(scenario: &Scenario, report: &mut RunReport, more: usi
     let period: Vec<_> = trace.changes[trace.changes.len() - 8..].to_vec();
     let length = ns("16").fs();
     for round in 1..=(more / 8) as u64 {
-        trace.changes.extend(period.iter().map(|change| Change {
-            at: change.at + Span::from_fs(length * round),
-            ..*change
-        }));
+        trace
+            .changes
+            .extend(period.iter().map(|change| Change { at: change.at + Span::from_fs(length * round), ..*change }));
     }
     let end = trace.changes.last().unwrap().at;
     let window = trace.windows.last_mut().unwrap();

@@ -6,9 +6,7 @@ use stillgate::instance::Which;
 use stillgate::logic::{Bits, State, Value};
 use stillgate::review::{Call, Review, StatesReport, Verdict};
 use stillgate::scenario::Scenario;
-use stillgate::sweep::{
-    Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport, Worst,
-};
+use stillgate::sweep::{Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport, Worst};
 use stillgate::time::Span;
 
 use super::cases::{self, ns};

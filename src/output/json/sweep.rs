@@ -186,9 +186,9 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         of: finding.of,
         share: finding.share.map(six),
         interval: finding.interval.map(|(low, high)| OneLine([six(low), six(high)])),
-        boards: finding.boards.map(|it| {
-            OneLine(Boards { of: it.of, failing: it.failing, worst_share: six(it.worst_share) })
-        }),
+        boards: finding
+            .boards
+            .map(|it| OneLine(Boards { of: it.of, failing: it.failing, worst_share: six(it.worst_share) })),
         worst: finding.worst.map(|worst| Measured::of(worst, scenario.unit)),
         tie: finding.tie.map(words::tie),
         sample: finding.sample,

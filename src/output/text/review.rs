@@ -20,7 +20,7 @@ pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
 }
 
 /// The verdict in one sentence, and its reasons.
-fn verdict(paper: &mut Paper, verdict: &Verdict) {
+pub(super) fn verdict(paper: &mut Paper, verdict: &Verdict) {
     let (words, sentence) = (verdict.call.words(), verdict.sentence.trim());
     let sentence = match sentence.to_lowercase().starts_with(words) {
         true => sentence.to_string(),
@@ -34,10 +34,13 @@ fn verdict(paper: &mut Paper, verdict: &Verdict) {
         Call::Proved | Call::NoFailureFound => Tone::Strong,
     };
     paper.say(0, tone, &format!("{capital}{}", letters.as_str()));
-    for reason in verdict.reasons.iter().take(REASONS) {
-        paper.item(Tone::Plain, reason);
+    // a single reason is what the sentence says
+    if verdict.reasons.len() > 1 {
+        for reason in verdict.reasons.iter().take(REASONS) {
+            paper.item(Tone::Plain, reason);
+        }
+        super::more(paper, verdict.reasons.len().saturating_sub(REASONS), "the JSON, with --json");
     }
-    super::more(paper, verdict.reasons.len().saturating_sub(REASONS), "result.json");
 }
 
 /// Everything about a sweep below its first sentence.

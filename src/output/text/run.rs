@@ -55,8 +55,7 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
 }
 
 fn table(paper: &mut Paper, scenario: &Scenario, windows: &[Window]) {
-    let mut table =
-        Table::new().text("step").number("from", 1).word("end").number("settling", 0).text("at rest");
+    let mut table = Table::new().text("step").number("from", 1).word("end").number("settling", 0).text("at rest");
     for window in windows.iter().take(WINDOWS) {
         let (tone, rest) = match window.end {
             End::Settled => (Tone::Plain, steps::state(scenario, &scenario.outputs, &window.state)),

@@ -114,7 +114,8 @@ fn lines(scenario: &Scenario, window: &WindowReport) -> Vec<(Tone, u64, String)>
 
 /// Median, 99th percentile and longest, `≥` where a cut window could make them longer.
 fn times(settling: &Settling) -> [String; 3] {
-    let text = |time: crate::time::Span, at_least: bool| format!("{}{}", if at_least { "≥ " } else { "" }, time.rounded());
+    let text =
+        |time: crate::time::Span, at_least: bool| format!("{}{}", if at_least { "≥ " } else { "" }, time.rounded());
     [
         text(settling.median, settling.median_at_least),
         text(settling.p99, settling.p99_at_least),

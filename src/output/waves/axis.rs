@@ -98,8 +98,10 @@ impl Axis {
         let step = round_above(shown / 9);
         let mut ticks = Vec::new();
         for piece in &self.pieces {
+            // a piece between cuts needs two labels to show its scale, where it has room for them
+            let wanted = if piece.right - piece.left > 110.0 { 2 } else { 1 };
             let mut fine = step;
-            while fine > 1 && piece.from.next_multiple_of(fine) > piece.to {
+            while fine > 1 && piece.from.next_multiple_of(fine) + (wanted - 1) * fine > piece.to {
                 fine = round_below(fine);
             }
             let mut first = true;

@@ -3,11 +3,11 @@
 use maud::{Markup, html};
 
 use super::Picture;
-use super::frame::{Bracket, Frame, LINE, Lane, MARGIN, SWING, WIDTH};
 use super::flags::OFFSET;
+use super::frame::{Bracket, Frame, LINE, Lane, MARGIN, SWING, WIDTH};
 use super::lane::{Line, line, number};
-use crate::output::words::clean;
 use crate::output::ink::{BODY, FINDING, INK, QUIET, REST, SECOND, SMALL};
+use crate::output::words::clean;
 
 /// White behind text that lines pass through.
 const HALO: &str = "paint-order:stroke;stroke:#fff;stroke-width:3px;stroke-linejoin:round";

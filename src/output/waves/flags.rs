@@ -38,13 +38,7 @@ pub(super) fn place(steps: &[(f64, &Step)], right: f64) -> Flags {
     let named: Vec<usize> = (0..steps.len()).filter(|i| !steps[*i].1.is_tick).collect();
     let mut flags: Vec<Flag> = steps
         .iter()
-        .map(|(x, step)| Flag {
-            x: *x,
-            row: 0,
-            label: String::new(),
-            sets: String::new(),
-            is_tick: step.is_tick,
-        })
+        .map(|(x, step)| Flag { x: *x, row: 0, label: String::new(), sets: String::new(), is_tick: step.is_tick })
         .collect();
     if let Some(rows) = in_full(steps, &named, right) {
         for (i, row) in named.iter().zip(&rows) {

@@ -205,7 +205,8 @@ impl Frame {
         }
 
         let full_title = title(picture, sheet);
-        let cut = cut_end(&full_title, 14.0, WIDTH - 2.0 * MARGIN);
+        // bold letters are wider than the estimate
+        let cut = cut_end(&full_title, 14.0, (WIDTH - 2.0 * MARGIN) / 1.15);
         let description = describe(picture, &lanes, &steps, &spots, range);
         Frame {
             title: cut.unwrap_or_else(|| full_title.clone()),

@@ -131,8 +131,7 @@ mod tests {
     #[test]
     fn the_shortest_glitch_keeps_its_edges() {
         let fs = Time::from_fs(50_000_000);
-        let wave =
-            Wave { before: Value::One, edges: vec![(fs, Value::Zero), (Time::from_fs(50_000_001), Value::One)] };
+        let wave = Wave { before: Value::One, edges: vec![(fs, Value::Zero), (Time::from_fs(50_000_001), Value::One)] };
         let line = line(&wave, &axis(100), (0.0, 100.0), 5.0, 20.0, true);
         assert_eq!(line.path, "M0 5H50V20H50V5H100");
         assert!(line.blocks.is_empty());

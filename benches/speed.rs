@@ -1,0 +1,174 @@
+//! Speed of the kernel, the judges, the sweep and the state set, side by side in one run: `cargo bench`.
+//!
+//! Every benchmark asserts its answer. Items are events (transitions of nets), samples or states.
+
+use divan::counter::ItemsCount;
+use divan::{Bencher, black_box};
+use stillgate::circuit::{Circuit, Function};
+use stillgate::control::Control;
+use stillgate::engine::{Deaf, Observer, Program};
+use stillgate::findings::{Asked, Judge};
+use stillgate::instance::{Instance, Sampler, Which};
+use stillgate::scenario::{Builder, NewStep, Scenario};
+use stillgate::statics::StateSet;
+use stillgate::sweep::{Tally, run_samples};
+
+fn main() {
+    divan::main();
+}
+
+/// A latch of two NANDs, set and reset 100 times each.
+fn latch() -> Scenario {
+    let mut b = Builder::new("latch");
+    b.input("s", true);
+    b.input("r", true);
+    b.gate("q", Function::Nand, ["s", "qn"]).delay(["6", "9", "14"]);
+    b.gate("qn", Function::Nand, ["r", "q"]).delay(["6", "9", "14"]);
+    b.initial("q", false);
+    for i in 0..400 {
+        let net = if i % 4 < 2 { "s" } else { "r" };
+        b.step(NewStep::after("50").set(net, i % 2 == 1));
+    }
+    b.rules().glitch_free("q");
+    b.samples(10_000);
+    b.finish().expect("the latch is a good scenario")
+}
+
+/// Six NANDs that halve the frequency of `clock`; the output is `{name}.q`.
+fn divider(b: &mut Builder, name: &str, clock: &str) {
+    let n = |part: &str| format!("{name}.{part}");
+    let nand = |b: &mut Builder, out: &str, ins: &[String]| {
+        b.gate(n(out), Function::Nand, ins.iter().map(String::as_str)).delay(["6", "9", "14"]);
+    };
+    nand(b, "n1", &[n("n4"), n("n2")]);
+    nand(b, "n2", &[n("n1"), clock.to_string()]);
+    nand(b, "n3", &[n("n2"), clock.to_string(), n("n4")]);
+    nand(b, "n4", &[n("n3"), n("qn")]);
+    nand(b, "q", &[n("n2"), n("qn")]);
+    nand(b, "qn", &[n("n3"), n("q")]);
+    b.initial(n("q"), false);
+    b.initial(n("n1"), false);
+}
+
+/// A chain of dividers, each driven by the output of the one before, with this many edges of the first clock.
+fn dividers(stages: usize, edges: usize) -> Scenario {
+    let mut b = Builder::new("dividers");
+    b.input("clock", false);
+    let mut clock = "clock".to_string();
+    for stage in 0..stages {
+        divider(&mut b, &format!("d{stage}"), &clock);
+        clock = format!("d{stage}.q");
+    }
+    for i in 0..edges {
+        b.step(NewStep::after("1000").set("clock", i % 2 == 0));
+    }
+    b.rules().glitch_free(clock.as_str());
+    b.output(clock.as_str());
+    b.finish().expect("the dividers are a good scenario")
+}
+
+/// 100,000 gates: rows of NANDs, each gate reads two gates of the row before, started by one wide input.
+fn grid() -> Scenario {
+    let (rows, columns) = (1000usize, 100usize);
+    let mut b = Builder::new("grid");
+    for c in 0..columns {
+        b.input(format!("i{c}"), c % 3 == 0);
+    }
+    for r in 0..rows {
+        for c in 0..columns {
+            let source = |c: usize| {
+                let c = c % columns;
+                if r == 0 { format!("i{c}") } else { format!("g{}.{c}", r - 1) }
+            };
+            b.gate(format!("g{r}.{c}"), Function::Xor, [source(c), source(c + 7)].iter().map(String::as_str))
+                .delay(["6", "9", "14"]);
+        }
+    }
+    for i in 0..4 {
+        b.step(NewStep::rest("10").set(format!("i{}", 11 * i), i % 2 == 1));
+    }
+    b.output(format!("g{}.0", rows - 1));
+    b.limit_transitions(100_000_000);
+    b.finish().expect("the grid is a good scenario")
+}
+
+fn scenario(name: &str) -> Scenario {
+    match name {
+        "latch of 2, 400 steps" => latch(),
+        "divider of 6, 200 edges" => dividers(1, 200),
+        "ripple of 48, 200 edges" => dividers(8, 200),
+        _ => grid(),
+    }
+}
+
+const CIRCUITS: [&str; 4] = ["latch of 2, 400 steps", "divider of 6, 200 edges", "ripple of 48, 200 edges", "grid of 100,000"];
+
+/// Counts changes and nothing else.
+#[derive(Default)]
+struct Count(u64);
+
+impl Observer for Count {
+    type Tag = ();
+    fn change(&mut self, _: stillgate::time::Time, _: stillgate::circuit::NetId, _: stillgate::logic::Value, _: ()) {
+        self.0 += 1;
+    }
+}
+
+/// Runs typical cases with an observer; the items are events.
+fn run_with<O: Observer<Tag = ()>>(bencher: Bencher<'_, '_>, scenario: &Scenario, mut observer: O) {
+    let control = Control::default();
+    let program = Program::new(scenario, &control).expect("it begins at rest");
+    let mut machine = program.machine::<()>();
+    let mut instance = Instance::of(scenario, &Which::Typ);
+    let mut sampler = Sampler::new(scenario);
+    let mut count = Count::default();
+    machine.run(&instance, &control, &mut count);
+    assert!(count.0 > 500, "the circuit moves: {} events", count.0);
+    let mut sample = 0;
+    bencher.counter(ItemsCount::new(count.0)).bench_local(|| {
+        sampler.fill(sample, &mut instance);
+        sample += 1;
+        assert!(machine.run(black_box(&instance), &control, &mut observer));
+    });
+}
+
+/// Kernel alone, drawing and reset included.
+#[divan::bench(args = CIRCUITS)]
+fn kernel(bencher: Bencher<'_, '_>, circuit: &str) {
+    run_with(bencher, &scenario(circuit), Deaf);
+}
+
+/// Kernel with all judges and the tally of a sweep.
+#[divan::bench(args = CIRCUITS)]
+fn kernel_and_judges(bencher: Bencher<'_, '_>, circuit: &str) {
+    let scenario = scenario(circuit);
+    let asked = Asked::of(&scenario);
+    run_with(bencher, &scenario, Judge::new(&scenario, &asked, Tally::new(&scenario, &asked)));
+}
+
+/// Samples of the latch, on one and on two threads.
+#[divan::bench(args = [1, 2], sample_count = 10)]
+fn sweep_of_2000_latches(bencher: Bencher<'_, '_>, threads: usize) {
+    let scenario = latch();
+    let program = Program::new(&scenario, &Control::default()).expect("it begins at rest");
+    let asked = Asked::of(&scenario);
+    bencher.counter(ItemsCount::new(2000u64)).bench_local(|| {
+        let tally = run_samples(&scenario, &program, &asked, 0..2000, threads, &Control::default());
+        assert_eq!(tally.samples, 2000);
+        assert_eq!(tally.windows[399].settled, 2000);
+        tally
+    });
+}
+
+/// All stable states of a chain of six-NAND dividers.
+#[divan::bench(args = [8, 64], sample_count = 10)]
+fn states_of_dividers(bencher: Bencher<'_, '_>, stages: usize) {
+    let scenario = dividers(stages, 1);
+    let circuit: &Circuit = &scenario.circuit;
+    bencher.bench_local(|| {
+        let set = StateSet::of(circuit, &Control::default()).expect("within the budget");
+        // the first clock is free; each divider rests in two states whatever its clock is
+        assert_eq!(set.count().bits(), stages as u64 + 2);
+        set.count()
+    });
+}

@@ -1,0 +1,112 @@
+//! Commands and options.
+
+use std::path::PathBuf;
+
+use clap::builder::PossibleValuesParser;
+use clap::{Args, Parser, Subcommand};
+
+/// Shows where a block of feedback logic comes to rest, for every delay its parts may have.
+///
+/// A scenario file holds the circuit, its delay ranges, the stimulus and the rules. Without one, the built-in
+/// demonstration is used: the interlock of two canal-lock gates.
+///
+/// Exit codes: 0 done; 1 the verdict is broken or undecided, only with --strict; 2 the input or the command line is bad;
+/// 3 the program caught itself in a contradiction, please report it; 130 interrupted.
+#[derive(Debug, Parser)]
+#[command(name = "stillgate", version, max_term_width = 100, subcommand_required = true, arg_required_else_help = true)]
+pub struct Arguments {
+    #[command(subcommand)]
+    pub command: Command,
+}
+
+#[derive(Debug, Subcommand)]
+pub enum Command {
+    /// The main job: stable states, typical run, sweep, findings, pictures, verdict
+    Review(Sweeping),
+    /// One run, with its waveforms
+    Run(Running),
+    /// The Monte Carlo sweep alone
+    Sweep(Sweeping),
+    /// All stable states, without delays
+    States(Looking),
+    /// Reads the scenario, reports errors, prints what it understood
+    Check(Checking),
+}
+
+#[derive(Debug, Args)]
+pub struct Input {
+    /// The scenario file (TOML); without it the built-in demonstration
+    pub scenario: Option<PathBuf>,
+    /// Print one JSON object instead of the text
+    #[arg(long)]
+    pub json: bool,
+    /// Print nothing but errors
+    #[arg(long, short)]
+    pub quiet: bool,
+}
+
+#[derive(Debug, Args)]
+pub struct Folder {
+    /// Folder for the files, made if needed; default `stillgate-out/<scenario stem>`
+    #[arg(long, value_name = "DIR")]
+    pub out: Option<PathBuf>,
+}
+
+#[derive(Debug, Args)]
+pub struct Draws {
+    /// Number of draws, in place of the scenario's
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(1..1 << 62))]
+    pub samples: Option<u64>,
+    /// Seed of all draws, in place of the scenario's
+    #[arg(long, value_name = "S")]
+    pub seed: Option<u64>,
+    /// How delays spread over their ranges, in place of the scenario's
+    #[arg(long, value_name = "KIND", value_parser = PossibleValuesParser::new(["uniform", "triangular", "normal", "corners"]))]
+    pub draw: Option<String>,
+}
+
+#[derive(Debug, Args)]
+pub struct Sweeping {
+    #[command(flatten)]
+    pub input: Input,
+    #[command(flatten)]
+    pub folder: Folder,
+    #[command(flatten)]
+    pub draws: Draws,
+    /// Number of threads; default all cores. The results do not depend on it
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
+    pub threads: Option<u16>,
+    /// Exit with 1 if the verdict is broken or undecided
+    #[arg(long)]
+    pub strict: bool,
+}
+
+#[derive(Debug, Args)]
+pub struct Running {
+    #[command(flatten)]
+    pub input: Input,
+    #[command(flatten)]
+    pub folder: Folder,
+    #[command(flatten)]
+    pub draws: Draws,
+    /// Which case: typ, min, max, sample:N, or an instance file
+    #[arg(long, value_name = "CASE", default_value = "typ")]
+    pub delays: String,
+    /// Exit with 1 if a rule is broken in this run
+    #[arg(long)]
+    pub strict: bool,
+}
+
+#[derive(Debug, Args)]
+pub struct Looking {
+    #[command(flatten)]
+    pub input: Input,
+    #[command(flatten)]
+    pub folder: Folder,
+}
+
+#[derive(Debug, Args)]
+pub struct Checking {
+    #[command(flatten)]
+    pub input: Input,
+}

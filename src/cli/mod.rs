@@ -1,0 +1,43 @@
+//! The command line: one thin file a command. A command reads, runs, renders, and gives an exit code.
+
+mod args;
+mod check;
+mod common;
+mod review;
+mod run;
+mod states;
+mod sweep;
+
+use std::process::ExitCode;
+
+use clap::Parser;
+
+use args::{Arguments, Command};
+use common::Failure;
+
+/// Runs the program with the arguments it was called with.
+pub fn main() -> ExitCode {
+    let arguments = match Arguments::try_parse() {
+        Ok(arguments) => arguments,
+        Err(error) => {
+            // help and version go to standard output and are no failure
+            let code = if error.use_stderr() { 2 } else { 0 };
+            let _ = error.print();
+            return ExitCode::from(code);
+        }
+    };
+    let done = match arguments.command {
+        Command::Review(it) => review::run(&it),
+        Command::Run(it) => run::run(&it),
+        Command::Sweep(it) => sweep::run(&it),
+        Command::States(it) => states::run(&it),
+        Command::Check(it) => check::run(&it),
+    };
+    match done {
+        Ok(code) => code,
+        Err(failure) => {
+            common::complain(&failure);
+            ExitCode::from(failure.code())
+        }
+    }
+}

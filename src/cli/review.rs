@@ -1,0 +1,33 @@
+//! `stillgate review`: the main job.
+
+use std::process::ExitCode;
+
+use super::args::Sweeping;
+use super::common::{
+    Failure, INTERRUPTED, called, code, control, finish, folder, load, program, page, say, with_draws, write,
+};
+use crate::output::{bundle, json, text};
+use crate::review;
+
+pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
+    let input = &arguments.input;
+    let scenario = with_draws(load(input)?, &arguments.draws);
+    let (control, bar) = control(input.quiet, "review");
+    let program = program(&scenario, &control)?;
+    let review = review::review(&scenario, &program, arguments.threads.map_or(0, usize::from), &control)?;
+    finish(bar);
+    if control.cancelled() && review.sweep.samples == 0 {
+        return Err(Failure::Interrupted);
+    }
+    if input.json {
+        say(&json::review(&scenario, &review))?;
+    } else if !input.quiet {
+        say(&text::review(&scenario, &review, &page(called(input).as_deref())))?;
+    }
+    let bundle = bundle::of_review(&scenario, &review);
+    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    if control.cancelled() {
+        return Ok(ExitCode::from(INTERRUPTED));
+    }
+    Ok(code(review.verdict.call, arguments.strict))
+}

@@ -1,0 +1,63 @@
+//! `stillgate run`: one case.
+
+use std::path::Path;
+use std::process::ExitCode;
+
+use super::args::Running;
+use super::common::{Failure, called, control, finish, folder, load, page, program, say, with_draws, write};
+use crate::findings::Asked;
+use crate::instance::Which;
+use crate::output::instance::write_instance;
+use crate::output::{bundle, json, text};
+use crate::reader;
+use crate::review;
+use crate::scenario::Scenario;
+
+pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
+    let input = &arguments.input;
+    let scenario = with_draws(load(input)?, &arguments.draws);
+    let which = which(&arguments.delays, &scenario)?;
+    if scenario.cannot_run {
+        return Err(Failure::Bad(format!("this circuit cannot be run yet: {}", scenario.not_analysed.join("; "))));
+    }
+    let (control, bar) = control(true, "run");
+    let program = program(&scenario, &control)?;
+    let asked = Asked::of(&scenario);
+    let report = review::run_one(&scenario, &program, &asked, which, &control);
+    finish(bar);
+    let report = report.ok_or(Failure::Interrupted)?;
+    let document = json::run(&scenario, &asked, &report);
+    if input.json {
+        say(&document)?;
+    } else if !input.quiet {
+        say(&text::run(&scenario, &asked, &report, &page(called(input).as_deref())))?;
+    }
+    let mut bundle = bundle::of_run(&scenario, &asked, &report, None);
+    bundle.add("run.json", document);
+    bundle.add("case.toml", write_instance(&report.instance, &scenario));
+    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    let broken = report.facts.iter().any(|fact| fact.breaks_rule);
+    Ok(ExitCode::from(u8::from(arguments.strict && broken)))
+}
+
+/// The case that `--delays` names.
+fn which(text: &str, scenario: &Scenario) -> Result<Which, Failure> {
+    match text {
+        "typ" => return Ok(Which::Typ),
+        "min" => return Ok(Which::Min),
+        "max" => return Ok(Which::Max),
+        _ => {}
+    }
+    if let Some(number) = text.strip_prefix("sample:") {
+        let number = number.parse::<u64>().ok().filter(|number| *number < 1 << 62);
+        return number.map(Which::Sample).ok_or_else(|| {
+            Failure::Bad(format!("`--delays {text}` names no sample; write for example `--delays sample:12`"))
+        });
+    }
+    let path = Path::new(text);
+    if !path.exists() {
+        let message = format!("`--delays {text}`: there is no such file; write typ, min, max, sample:N or a file");
+        return Err(Failure::Bad(message));
+    }
+    Ok(Which::Given(Box::new(reader::load_instance(path, scenario)?)))
+}

@@ -1,0 +1,31 @@
+//! `stillgate states`
+
+use std::process::ExitCode;
+
+use super::args::Looking;
+use super::common::{Failure, called, control, finish, folder, load, page, say, write};
+use crate::output::bundle::Bundle;
+use crate::output::{json, tables, text};
+use crate::review;
+
+pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
+    let input = &arguments.input;
+    let scenario = load(input)?.scenario;
+    let (control, bar) = control(true, "states");
+    let report = review::states(&scenario.circuit, &control);
+    finish(bar);
+    if control.cancelled() {
+        return Err(Failure::Interrupted);
+    }
+    let document = json::states(&scenario, &report);
+    if input.json {
+        say(&document)?;
+    } else if !input.quiet {
+        say(&text::states(&scenario, &report, &page(called(input).as_deref())))?;
+    }
+    let mut bundle = Bundle::default();
+    bundle.add("states.csv", tables::states(&scenario, &report));
+    bundle.add("states.json", document);
+    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    Ok(ExitCode::SUCCESS)
+}

@@ -1,0 +1,673 @@
+//! The judges of one run, as one observer of a fixed number of words.
+
+mod edges;
+mod nets;
+mod sink;
+mod span;
+mod states;
+
+use edges::{MinPulse, Timing};
+use nets::{Count, NONE, Settle, Watch};
+pub use sink::{Seen, Sink};
+use span::{Cone, NetWindow, Shut};
+use states::{Expect, Never, NotAtRest};
+pub use states::{Match, matches, matches_any};
+
+use super::asked::{Asked, RuleKey};
+use super::pulses::Pulses;
+use super::words::{Fact, Kind, Measure, Reason, Subject};
+use crate::circuit::{GateId, NetId};
+use crate::engine::{Closing, End, Finish, Observer, Opening};
+use crate::logic::{State, Value};
+use crate::scenario::{Before, Begin, Oscillation, Scenario, Swallowed};
+use crate::time::{Span, Time};
+
+/// Who listens to a net.
+#[derive(Clone, Copy, Debug)]
+enum Ear {
+    Watch(u32),
+    Settle(u32),
+    Count(u32),
+    Never { test: u32, entry: u32 },
+    MinPulse(u32),
+    Timing(u32),
+}
+
+/// All judges of a scenario. The answers go to the sink.
+#[derive(Clone, Debug)]
+pub struct Judge<S> {
+    /// Where the answers go.
+    pub sink: S,
+    inputs: u32,
+    at_rest: bool,
+    /// What is said of oscillation in the window of each moment.
+    oscillation: Vec<Oscillation>,
+    required: Option<u32>,
+    race_questions: Vec<u32>,
+    oscillation_questions: Vec<u32>,
+    before_rest_questions: Vec<u32>,
+    reference_questions: Vec<u32>,
+    swallowed_questions: Vec<(Option<NetId>, u32)>,
+    /// Questions of each moment that wait for it to be reached.
+    by_moment: Vec<Vec<u32>>,
+
+    ear_start: Vec<u32>,
+    ears: Vec<Ear>,
+    in_loop: Vec<bool>,
+
+    watches: Vec<Watch>,
+    settles: Vec<Settle>,
+    counts: Vec<Count>,
+    expects: Vec<Expect>,
+    not_at_rest: Vec<NotAtRest>,
+    nevers: Vec<Never>,
+    timings: Vec<Timing>,
+    min_pulses: Vec<MinPulse>,
+    never_dirty: bool,
+    timing_dirty: bool,
+
+    moment: Option<u32>,
+    reached: Vec<bool>,
+    reached_count: usize,
+    values: State,
+    before: State,
+    has_before: bool,
+    order: u64,
+    order_open: bool,
+    pending: Vec<NetId>,
+    shut: End,
+    unsettled: bool,
+    oscillated: bool,
+    swallowed: Vec<u64>,
+    swallowing: Vec<u32>,
+    swallowed_broken: Vec<bool>,
+    late: Vec<Fact>,
+}
+
+const MIX: u64 = 0x9E37_79B9_7F4A_7C15;
+
+fn mix(hash: u64, word: u64) -> u64 {
+    (hash ^ word).wrapping_mul(MIX).rotate_left(29)
+}
+
+impl<S: Sink> Judge<S> {
+    /// The judges of a scenario, for the questions that [`Asked::of`] made of it.
+    pub fn new(scenario: &Scenario, asked: &Asked, sink: S) -> Judge<S> {
+        let (circuit, rules, stimulus) = (&*scenario.circuit, &*scenario.rules, &*scenario.stimulus);
+        let moments = stimulus.moments.len();
+        let by_rule = |rule: RuleKey, index: u32, net: Option<NetId>| {
+            let mut all = vec![NONE; moments];
+            for (q, question) in asked.questions.iter().enumerate() {
+                if (question.rule, question.index, question.net) == (rule, index, net)
+                    && let Some(moment) = question.moment
+                {
+                    all[moment as usize] = q as u32;
+                }
+            }
+            all
+        };
+        let single = |rule: RuleKey, index: u32, net: Option<NetId>| asked.find(rule, index, net, None).unwrap_or(NONE);
+
+        let mut ears: Vec<Vec<Ear>> = vec![Vec::new(); circuit.net_count()];
+        let mut watches = Vec::new();
+        let mut settles = Vec::new();
+        for net in &scenario.watched {
+            let cone = Cone::of(circuit, &[*net]);
+            let rule = rules.glitch_free.iter().position(|rule| rule.net == *net);
+            ears[net.index()].push(Ear::Watch(watches.len() as u32));
+            watches.push(Watch {
+                net: *net,
+                cone: cone.clone(),
+                ruled: rule.is_some(),
+                bound: rule.map_or(Span::ZERO, |i| rules.glitch_free[i].shorter_than),
+                questions: match rule {
+                    Some(i) => by_rule(RuleKey::GlitchFree, i as u32, Some(*net)),
+                    None => vec![NONE; moments],
+                },
+                window: None,
+                before: Value::X,
+                pulses: Pulses::new(rule.map_or(Span::ZERO, |i| rules.glitch_free[i].shorter_than)),
+            });
+            let questions = by_rule(RuleKey::SettleWithin, 0, Some(*net));
+            let bound_of = |q: &u32| asked.questions.get(*q as usize).and_then(|q| q.bound).unwrap_or_default();
+            let bounds: Vec<Span> = questions.iter().map(bound_of).collect();
+            // one judge for the rule, and one for each step with a bound of its own: their windows may differ
+            let own = |m: usize| stimulus.step_of(&stimulus.moments[m]).is_some_and(|s| s.settle_within.is_some());
+            let mut add = |keep: &dyn Fn(usize) -> bool| {
+                let kept = |m: usize| if keep(m) { questions[m] } else { NONE };
+                let questions: Vec<u32> = (0..moments).map(kept).collect();
+                if questions.iter().any(|q| *q != NONE) {
+                    ears[net.index()].push(Ear::Settle(settles.len() as u32));
+                    settles.push(Settle {
+                        net: *net,
+                        cone: cone.clone(),
+                        questions,
+                        bounds: bounds.clone(),
+                        window: None,
+                        last: None,
+                    });
+                }
+            };
+            add(&|m| !own(m));
+            for step in (0..moments).filter(|m| own(*m)) {
+                add(&|m| m == step);
+            }
+        }
+
+        let mut counts = Vec::new();
+        let mut expects = Vec::new();
+        for (s, step) in stimulus.steps.iter().enumerate() {
+            let moment = stimulus.moment_of_step(s as u32);
+            for wanted in &step.edges {
+                ears[wanted.net.index()].push(Ear::Count(counts.len() as u32));
+                counts.push(Count {
+                    wanted: *wanted,
+                    cone: Cone::of(circuit, &[wanted.net]),
+                    moment,
+                    question: asked.find(RuleKey::Edges, 0, Some(wanted.net), Some(moment)).unwrap_or(NONE),
+                    window: None,
+                    transitions: 0,
+                });
+            }
+            if let Some(expect) = &step.expect {
+                let nets: Vec<NetId> = expect.alternatives.iter().flatten().map(|(net, _)| *net).collect();
+                expects.push(Expect {
+                    alternatives: expect.alternatives.clone(),
+                    cone: Cone::of(circuit, &nets),
+                    moment,
+                    question: asked.find(RuleKey::Expect, 0, None, Some(moment)).unwrap_or(NONE),
+                    window: None,
+                });
+            }
+        }
+        let at_rest = matches!(scenario.begin, Begin::AtRest { .. });
+        let not_at_rest = rules.never_at_rest.iter().enumerate().map(|(i, rule)| {
+            let nets: Vec<NetId> = rule.state.iter().map(|(net, _)| *net).collect();
+            NotAtRest {
+                pattern: rule.state.clone(),
+                cone: Cone::of(circuit, &nets),
+                at_start: single(RuleKey::NeverAtRest, i as u32, None),
+                questions: by_rule(RuleKey::NeverAtRest, i as u32, None),
+                window: None,
+            }
+        });
+        let nevers: Vec<Never> = rules
+            .never
+            .iter()
+            .enumerate()
+            .map(|(i, rule)| {
+                for (entry, (net, _)) in rule.state.iter().enumerate() {
+                    ears[net.index()].push(Ear::Never { test: i as u32, entry: entry as u32 });
+                }
+                Never::new(rule.state.clone(), rule.longer_than, single(RuleKey::Never, i as u32, None))
+            })
+            .collect();
+        let timings: Vec<Timing> = rules
+            .timing
+            .iter()
+            .enumerate()
+            .map(|(i, rule)| {
+                ears[rule.from.net.index()].push(Ear::Timing(i as u32));
+                if rule.to.net != rule.from.net {
+                    ears[rule.to.net.index()].push(Ear::Timing(i as u32));
+                }
+                let question = single(RuleKey::Timing, i as u32, None);
+                Timing::new(rule, circuit.is_input(rule.to.net), question)
+            })
+            .collect();
+        let min_pulses: Vec<MinPulse> = rules
+            .min_pulse
+            .iter()
+            .enumerate()
+            .map(|(i, rule)| {
+                ears[rule.net.index()].push(Ear::MinPulse(i as u32));
+                MinPulse::new(rule, single(RuleKey::MinPulse, i as u32, Some(rule.net)))
+            })
+            .collect();
+        let swallowed_questions: Vec<(Option<NetId>, u32)> = match &rules.swallowed {
+            Swallowed::Listed => Vec::new(),
+            Swallowed::Forbidden => vec![(None, single(RuleKey::Swallowed, 0, None))],
+            Swallowed::At(nets) => {
+                nets.iter().map(|net| (Some(*net), single(RuleKey::Swallowed, 0, Some(*net)))).collect()
+            }
+        };
+        let mut by_moment = vec![Vec::new(); moments];
+        for (q, question) in asked.questions.iter().enumerate() {
+            if let Some(moment) = question.moment
+                && question.rule != RuleKey::Reference
+            {
+                by_moment[moment as usize].push(q as u32);
+            }
+        }
+        let mut ear_start = vec![0u32];
+        let mut flat = Vec::new();
+        for list in ears {
+            flat.extend(list);
+            ear_start.push(flat.len() as u32);
+        }
+        let oscillation = stimulus
+            .moments
+            .iter()
+            .map(|moment| stimulus.step_of(moment).and_then(|step| step.oscillation).unwrap_or(rules.oscillation))
+            .collect();
+        let references = asked.questions.iter().enumerate().filter(|(_, q)| q.rule == RuleKey::Reference);
+        Judge {
+            sink,
+            inputs: circuit.input_count() as u32,
+            at_rest,
+            oscillation,
+            required: asked.find(RuleKey::Oscillation, 0, None, None),
+            race_questions: by_rule(RuleKey::CriticalRace, 0, None),
+            oscillation_questions: by_rule(RuleKey::Oscillation, 0, None),
+            before_rest_questions: match rules.before_rest {
+                Before::Forbidden => by_rule(RuleKey::BeforeRest, 0, None),
+                Before::Allowed => vec![NONE; moments],
+            },
+            reference_questions: references.map(|(q, _)| q as u32).collect(),
+            swallowed_broken: vec![false; swallowed_questions.len()],
+            swallowed_questions,
+            by_moment,
+            ear_start,
+            ears: flat,
+            in_loop: circuit.nets().map(|net| circuit.in_loop(net)).collect(),
+            watches,
+            settles,
+            counts,
+            expects,
+            not_at_rest: not_at_rest.collect(),
+            nevers,
+            timings,
+            min_pulses,
+            never_dirty: false,
+            timing_dirty: false,
+            moment: None,
+            reached: vec![false; moments],
+            reached_count: 0,
+            values: State::zeros(circuit.net_count()),
+            before: State::zeros(circuit.net_count()),
+            has_before: false,
+            order: 0,
+            order_open: false,
+            pending: Vec::new(),
+            shut: End::Settled,
+            unsettled: false,
+            oscillated: false,
+            swallowed: vec![0; circuit.gate_count()],
+            swallowing: Vec::new(),
+            late: Vec::new(),
+        }
+    }
+
+    /// Is an oscillation in the window of this moment allowed or wanted, so that nothing else is asked of it?
+    fn spares(&self, moment: u32) -> bool {
+        self.oscillation[moment as usize] != Oscillation::Forbidden
+    }
+
+    /// Ends the windows of nets that `touched` says, as things stood when the last whole window ended.
+    fn close_nets(&mut self, state: &State, touched: impl Fn(&Cone) -> bool) {
+        let spared = self.moment.is_some_and(|moment| self.spares(moment));
+        let shut = Shut { end: self.shut, pending: &self.pending };
+        let sink = &mut self.sink;
+        for watch in self.watches.iter_mut().filter(|it| it.window.is_some() && touched(&it.cone)) {
+            watch.close(&shut, spared, state, sink);
+        }
+        for settle in self.settles.iter_mut().filter(|it| it.window.is_some() && touched(&it.cone)) {
+            settle.close(&shut, spared, sink);
+        }
+        for count in self.counts.iter_mut().filter(|it| it.window.is_some() && touched(&it.cone)) {
+            count.close(&shut, sink);
+        }
+        for expect in self.expects.iter_mut().filter(|it| it.window.is_some() && touched(&it.cone)) {
+            expect.close(&shut, state, sink);
+        }
+        for rest in self.not_at_rest.iter_mut().filter(|it| it.window.is_some() && touched(&it.cone)) {
+            rest.close(&shut, spared, state, sink);
+        }
+    }
+
+    fn open_nets(&mut self, opening: &Opening<'_>) {
+        let power_up = !self.at_rest && opening.moments[0] == 0;
+        let names = |questions: &Vec<u32>| {
+            let asked = opening.moments.iter().find(|m| questions[**m as usize] != NONE);
+            asked.copied().unwrap_or(opening.moments[0])
+        };
+        for watch in &mut self.watches {
+            if watch.cone.is_touched(opening) {
+                let counted = |count: &Count| count.wanted.net == watch.net && opening.moments.contains(&count.moment);
+                if self.counts.iter().any(counted) {
+                    watch.window = None;
+                } else {
+                    watch.open(NetWindow::open(names(&watch.questions), &watch.cone, opening), opening.state);
+                }
+            }
+        }
+        for settle in &mut self.settles {
+            if power_up || settle.cone.is_touched(opening) {
+                let moment = names(&settle.questions);
+                settle.window = settle.asks(moment).then(|| NetWindow::open(moment, &settle.cone, opening));
+                settle.last = None;
+            }
+        }
+        for count in self.counts.iter_mut().filter(|count| opening.moments.contains(&count.moment)) {
+            count.window = Some(NetWindow::open(count.moment, &count.cone, opening));
+            count.transitions = 0;
+        }
+        for expect in self.expects.iter_mut().filter(|expect| opening.moments.contains(&expect.moment)) {
+            expect.window = Some(NetWindow::open(expect.moment, &expect.cone, opening));
+        }
+        for rest in &mut self.not_at_rest {
+            if power_up || rest.cone.is_touched(opening) {
+                rest.window = Some(NetWindow::open(names(&rest.questions), &rest.cone, opening));
+            }
+        }
+    }
+
+    /// The whole window that ends.
+    fn judge_window(&mut self, closing: &Closing<'_>) {
+        let moment = closing.moment;
+        let m = moment as usize;
+        let sink = &mut self.sink;
+        let unresolved = closing.end == End::Settled && closing.state.has_unknown();
+        let fact = |kind: Kind, question: u32, breaks_rule: bool, measure: Option<Measure>| Fact {
+            subject: Subject {
+                kind,
+                shape: None,
+                question: Some(question).filter(|question| *question != NONE),
+                net: None,
+                moment: Some(moment),
+            },
+            breaks_rule,
+            measure,
+            place: Some((closing.start, closing.at)),
+        };
+
+        let question = self.oscillation_questions[m];
+        let said = self.oscillation[m];
+        match closing.end {
+            End::Oscillating { period, .. } => {
+                let broken = said == Oscillation::Forbidden;
+                if question != NONE {
+                    sink.judged(question, broken, None);
+                }
+                sink.fact(fact(Kind::Oscillation, question, broken, Some(Measure::long(period))));
+            }
+            _ if question == NONE => {}
+            _ if !closing.began_at_rest => sink.not_judged(question, Reason::BeganBeforeRest),
+            End::Settled => {
+                let broken = said == Oscillation::Required;
+                sink.judged(question, broken, None);
+                if broken {
+                    sink.fact(fact(Kind::Oscillation, question, true, None));
+                }
+            }
+            end => sink.not_judged(question, states::reason_of(end)),
+        }
+        if let End::Unsettled(_) = closing.end {
+            sink.fact(fact(Kind::Unsettled, NONE, false, None));
+        }
+        if unresolved {
+            sink.fact(fact(Kind::Unresolved, NONE, false, None));
+        }
+
+        let question = self.race_questions[m];
+        if question != NONE {
+            match closing.end {
+                _ if !closing.began_at_rest => sink.not_judged(question, Reason::BeganBeforeRest),
+                End::Oscillating { .. } if said != Oscillation::Forbidden => {}
+                End::Settled if unresolved => sink.not_judged(question, Reason::Unresolved),
+                End::Settled => sink.judged(question, false, None),
+                end => sink.not_judged(question, states::reason_of(end)),
+            }
+        }
+
+        for gate in self.swallowing.drain(..) {
+            let worst = std::mem::take(&mut self.swallowed[gate as usize]);
+            let net = NetId(self.inputs + gate);
+            let under = |(only, _): &&(Option<NetId>, u32)| only.is_none_or(|only| only == net);
+            let question = self.swallowed_questions.iter().find(under).map(|(_, question)| *question);
+            for (broken, rule) in self.swallowed_broken.iter_mut().zip(&self.swallowed_questions) {
+                *broken |= under(&rule);
+            }
+            sink.fact(Fact {
+                subject: Subject { kind: Kind::Swallowed, shape: None, question, net: Some(net), moment: Some(moment) },
+                breaks_rule: question.is_some(),
+                measure: Some(Measure { rank: worst, value: worst }),
+                place: None,
+            });
+        }
+
+        sink.window(&Seen {
+            moment,
+            before: (closing.began_at_rest && self.has_before).then_some(&self.before),
+            began_at_rest: closing.began_at_rest,
+            end: closing.end,
+            state: closing.state,
+            time: match closing.end {
+                End::Settled => closing.settling_time(),
+                _ => closing.at.since(closing.settle_from),
+            },
+            order: self.order,
+        });
+    }
+}
+
+/// Keeps one fact a subject: the worst.
+fn keep_worst(late: &mut Vec<Fact>, fact: Fact) {
+    match late.iter_mut().find(|kept| kept.subject == fact.subject) {
+        Some(kept) if kept.measure < fact.measure => *kept = fact,
+        Some(_) => {}
+        None => late.push(fact),
+    }
+}
+
+impl<S: Sink> Observer for Judge<S> {
+    type Tag = ();
+
+    fn start(&mut self, state: &State) {
+        self.moment = None;
+        self.reached.fill(false);
+        self.reached_count = 0;
+        self.values.copy_from(state);
+        self.pending.clear();
+        self.shut = End::Settled;
+        (self.unsettled, self.oscillated) = (false, false);
+        (self.order, self.order_open, self.has_before) = (0, false, false);
+        self.late.clear();
+        self.swallowed_broken.fill(false);
+        for gate in self.swallowing.drain(..) {
+            self.swallowed[gate as usize] = 0;
+        }
+        for watch in &mut self.watches {
+            watch.window = None;
+        }
+        for settle in &mut self.settles {
+            settle.window = None;
+        }
+        for count in &mut self.counts {
+            count.window = None;
+        }
+        for expect in &mut self.expects {
+            expect.window = None;
+        }
+        for rest in &mut self.not_at_rest {
+            rest.window = None;
+            if self.at_rest {
+                rest.start(state, &mut self.sink);
+            }
+        }
+        let moment = if self.at_rest { None } else { Some(0) };
+        for never in &mut self.nevers {
+            never.start(state);
+            never.batch(Time::ZERO, moment, &mut |fact| keep_worst(&mut self.late, fact));
+        }
+        for timing in &mut self.timings {
+            timing.start();
+        }
+        for pulse in &mut self.min_pulses {
+            pulse.start();
+        }
+    }
+
+    fn open(&mut self, opening: &Opening<'_>) {
+        self.close_nets(opening.state, |cone| cone.is_touched(opening));
+        for (i, moment) in opening.moments.iter().enumerate() {
+            let m = *moment as usize;
+            self.reached[m] = true;
+            self.reached_count += 1;
+            self.sink.reached(*moment, i == 0);
+            let question = self.before_rest_questions[m];
+            if question != NONE {
+                self.sink.judged(question, !opening.at_rest, None);
+                if !opening.at_rest {
+                    let subject = Subject {
+                        kind: Kind::BeforeRest,
+                        shape: None,
+                        question: Some(question),
+                        net: None,
+                        moment: Some(*moment),
+                    };
+                    let place = Some((opening.at, opening.at));
+                    self.sink.fact(Fact { subject, breaks_rule: true, measure: None, place });
+                }
+            }
+        }
+        self.moment = opening.moments.first().copied();
+        self.has_before = opening.at_rest && !opening.state.has_unknown();
+        if self.has_before {
+            self.before.copy_from(opening.state);
+        }
+        (self.order, self.order_open) = (0, false);
+        self.open_nets(opening);
+    }
+
+    #[inline]
+    fn change(&mut self, at: Time, net: NetId, new: Value, _cause: ()) {
+        let n = net.index();
+        if self.in_loop[n] {
+            self.order = mix(self.order, u64::from(net.0) + 1);
+            self.order_open = true;
+        }
+        let (first, last) = (self.ear_start[n] as usize, self.ear_start[n + 1] as usize);
+        if first == last {
+            return;
+        }
+        let old = self.values.get(n);
+        self.values.set(n, new);
+        for ear in &self.ears[first..last] {
+            match *ear {
+                Ear::Watch(i) => self.watches[i as usize].pulses.change(at),
+                Ear::Settle(i) => self.settles[i as usize].last = Some(at),
+                Ear::Count(i) => self.counts[i as usize].transitions += 1,
+                Ear::Never { test, entry } => {
+                    self.nevers[test as usize].change(entry, old, new);
+                    self.never_dirty = true;
+                }
+                Ear::MinPulse(i) => {
+                    let late = &mut self.late;
+                    self.min_pulses[i as usize].change(at, old, self.moment, &mut |fact| keep_worst(late, fact));
+                }
+                Ear::Timing(i) => {
+                    self.timings[i as usize].change(net, new);
+                    self.timing_dirty = true;
+                }
+            }
+        }
+    }
+
+    fn swallow(&mut self, _at: Time, gate: GateId, age: Span, delay: Span) {
+        if self.moment.is_none() {
+            return;
+        }
+        let share = Measure::share(age, delay).value.max(1);
+        let worst = &mut self.swallowed[gate.index()];
+        if *worst == 0 {
+            self.swallowing.push(gate.0);
+        }
+        *worst = share.max(*worst);
+    }
+
+    #[inline]
+    fn batch(&mut self, at: Time) {
+        if self.order_open {
+            self.order = mix(self.order, u64::MAX);
+            self.order_open = false;
+        }
+        let late = &mut self.late;
+        if self.never_dirty {
+            self.never_dirty = false;
+            for never in &mut self.nevers {
+                never.batch(at, self.moment, &mut |fact| keep_worst(late, fact));
+            }
+        }
+        if self.timing_dirty {
+            self.timing_dirty = false;
+            for timing in &mut self.timings {
+                timing.batch(at, self.moment, &mut |fact| keep_worst(late, fact));
+            }
+        }
+    }
+
+    fn close(&mut self, closing: &Closing<'_>) {
+        self.shut = closing.end;
+        self.unsettled |= matches!(closing.end, End::Unsettled(_));
+        self.oscillated |= matches!(closing.end, End::Oscillating { .. });
+        self.pending.clear();
+        self.pending.extend_from_slice(closing.pending);
+        self.judge_window(closing);
+    }
+
+    fn finish(&mut self, finish: &Finish<'_>) {
+        self.shut = finish.end;
+        self.close_nets(finish.state, |_| true);
+        let unseen = match (finish.end, finish.stopped_before) {
+            (End::Unsettled(_), _) => Some(Reason::Unsettled),
+            (_, Some(_)) => Some(Reason::NotAnalysedYet),
+            _ => None,
+        };
+        let late = &mut self.late;
+        for never in &mut self.nevers {
+            never.finish(finish.at, finish.end, unseen, &mut |fact| keep_worst(late, fact), &mut self.sink);
+        }
+        for timing in &mut self.timings {
+            timing.finish(finish.at, finish.end, unseen, &mut |fact| keep_worst(late, fact), &mut self.sink);
+        }
+        for pulse in &mut self.min_pulses {
+            pulse.finish(unseen, &mut self.sink);
+        }
+        for fact in self.late.drain(..) {
+            self.sink.fact(fact);
+        }
+        for ((_, question), broken) in self.swallowed_questions.iter().zip(&self.swallowed_broken) {
+            match unseen {
+                Some(reason) if !broken => self.sink.not_judged(*question, reason),
+                _ => self.sink.judged(*question, *broken, None),
+            }
+        }
+        if let Some(question) = self.required {
+            match unseen {
+                _ if self.oscillated => self.sink.judged(question, false, None),
+                Some(reason) => self.sink.not_judged(question, reason),
+                None => {
+                    self.sink.judged(question, true, None);
+                    let kind = Kind::Oscillation;
+                    let subject = Subject { kind, shape: None, question: Some(question), net: None, moment: None };
+                    self.sink.fact(Fact { subject, breaks_rule: true, measure: None, place: None });
+                }
+            }
+        }
+        for question in &self.reference_questions {
+            self.sink.not_judged(*question, Reason::NotAnalysedYet);
+        }
+        if self.reached_count < self.reached.len() {
+            let reason = match unseen {
+                Some(Reason::NotAnalysedYet) => Reason::NotAnalysedYet,
+                _ => Reason::NotReached,
+            };
+            for (moment, _) in self.reached.iter().enumerate().filter(|(_, reached)| !**reached) {
+                for question in &self.by_moment[moment] {
+                    self.sink.not_judged(*question, reason);
+                }
+            }
+        }
+    }
+}

@@ -1,0 +1,178 @@
+//! Judges of single nets in their own windows: glitches, settling, numbers of transitions.
+
+use super::sink::Sink;
+use super::span::{Cone, NetWindow, Shut};
+use crate::circuit::NetId;
+use crate::findings::pulses::{Left, Pulses};
+use crate::findings::{Fact, Kind, Measure, Reason, Shape, Subject};
+use crate::logic::{State, Value};
+use crate::scenario::EdgeCount;
+use crate::time::{Span, Time};
+
+/// Questions by moment; `NONE` where nothing is asked.
+pub(super) type ByMoment = Vec<u32>;
+pub(super) const NONE: u32 = u32::MAX;
+
+fn asked(by_moment: &ByMoment, moment: u32) -> Option<u32> {
+    by_moment.get(moment as usize).copied().filter(|question| *question != NONE)
+}
+
+/// Glitches of one watched net.
+#[derive(Clone, Debug)]
+pub(super) struct Watch {
+    pub net: NetId,
+    pub cone: Cone,
+    /// Is the net under `glitch_free`?
+    pub ruled: bool,
+    pub bound: Span,
+    /// The `glitch_free` question of each moment.
+    pub questions: ByMoment,
+    pub window: Option<NetWindow>,
+    pub before: Value,
+    pub pulses: Pulses,
+}
+
+impl Watch {
+    pub(super) fn open(&mut self, window: NetWindow, state: &State) {
+        self.window = Some(window);
+        self.before = state.get(self.net.index());
+        self.pulses.clear();
+    }
+
+    /// `spared`: an oscillation in this window is allowed, and nothing is asked of it.
+    pub(super) fn close(&mut self, shut: &Shut<'_>, spared: bool, state: &State, sink: &mut impl Sink) {
+        let Some(window) = self.window.take() else { return };
+        let question = asked(&self.questions, window.moment);
+        let after = state.get(self.net.index());
+        let obstacle = window
+            .obstacle(&self.cone, shut)
+            .or((self.before == Value::X || after == Value::X).then_some(Reason::Unresolved));
+        match obstacle {
+            Some(Reason::Oscillating) if spared => return,
+            Some(reason) => {
+                if let Some(question) = question {
+                    sink.not_judged(question, reason);
+                }
+                return;
+            }
+            None => {}
+        }
+        let left = self.pulses.finish();
+        let shape = match (self.before, after) {
+            _ if left.pulses == 0 => None,
+            (Value::Zero, Value::Zero) => Some(Shape::Static0),
+            (Value::One, Value::One) => Some(Shape::Static1),
+            _ if left.pulses >= 2 => Some(Shape::Dynamic),
+            _ => None,
+        };
+        if let Some(question) = question {
+            sink.judged(question, shape.is_some(), self.slack(&left));
+        }
+        if let (Some(shape), Some(pulse)) = (shape, left.narrowest) {
+            sink.fact(Fact {
+                subject: Subject {
+                    kind: Kind::Glitch,
+                    shape: Some(shape),
+                    question,
+                    net: Some(self.net),
+                    moment: Some(window.moment),
+                },
+                breaks_rule: self.ruled,
+                measure: Some(Measure::long(pulse.width)),
+                place: Some((pulse.start, pulse.start + pulse.width)),
+            });
+        }
+    }
+
+    /// How far the widest pulse is from breaking the rule, where pulses are tolerated.
+    fn slack(&self, left: &Left) -> Option<i64> {
+        if self.bound == Span::ZERO {
+            return None;
+        }
+        let widest = left.widest.or(self.pulses.widest_struck())?;
+        Some(self.bound.fs() as i64 - widest.fs() as i64)
+    }
+}
+
+/// The settling time of one watched net.
+#[derive(Clone, Debug)]
+pub(super) struct Settle {
+    pub net: NetId,
+    pub cone: Cone,
+    /// The question and the bound of each moment.
+    pub questions: ByMoment,
+    pub bounds: Vec<Span>,
+    pub window: Option<NetWindow>,
+    pub last: Option<Time>,
+}
+
+impl Settle {
+    pub(super) fn asks(&self, moment: u32) -> bool {
+        asked(&self.questions, moment).is_some()
+    }
+
+    pub(super) fn close(&mut self, shut: &Shut<'_>, spared: bool, sink: &mut impl Sink) {
+        let Some(window) = self.window.take() else { return };
+        let Some(question) = asked(&self.questions, window.moment) else { return };
+        let bound = self.bounds[window.moment as usize];
+        let took = self.last.map_or(Span::ZERO, |last| last.since(window.settle_from));
+        let slack = bound.fs() as i64 - took.fs() as i64;
+        match window.obstacle(&self.cone, shut) {
+            Some(Reason::Oscillating) if spared => return,
+            Some(Reason::BeganBeforeRest) => return sink.not_judged(question, Reason::BeganBeforeRest),
+            Some(reason) if slack >= 0 => return sink.not_judged(question, reason),
+            _ => sink.judged(question, slack < 0, Some(slack)),
+        }
+        if slack < 0 {
+            sink.fact(Fact {
+                subject: Subject {
+                    kind: Kind::SettleWithin,
+                    shape: None,
+                    question: Some(question),
+                    net: Some(self.net),
+                    moment: Some(window.moment),
+                },
+                breaks_rule: true,
+                measure: Some(Measure::long(took)),
+                place: Some((window.settle_from, window.settle_from + took)),
+            });
+        }
+    }
+}
+
+/// The number of transitions of one net after one step.
+#[derive(Clone, Debug)]
+pub(super) struct Count {
+    pub wanted: EdgeCount,
+    pub cone: Cone,
+    pub moment: u32,
+    pub question: u32,
+    pub window: Option<NetWindow>,
+    pub transitions: u64,
+}
+
+impl Count {
+    pub(super) fn close(&mut self, shut: &Shut<'_>, sink: &mut impl Sink) {
+        let Some(window) = self.window.take() else { return };
+        if let Some(reason) = window.obstacle(&self.cone, shut) {
+            return sink.not_judged(self.question, reason);
+        }
+        let wanted = u64::from(self.wanted.least)..=u64::from(self.wanted.most);
+        let broken = !wanted.contains(&self.transitions);
+        sink.judged(self.question, broken, None);
+        if broken {
+            sink.fact(Fact {
+                subject: Subject {
+                    kind: Kind::Edges,
+                    shape: None,
+                    question: Some(self.question),
+                    net: Some(self.wanted.net),
+                    moment: Some(self.moment),
+                },
+                breaks_rule: true,
+                measure: None,
+                place: None,
+            });
+        }
+    }
+}

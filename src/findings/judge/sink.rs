@@ -1,0 +1,50 @@
+//! Where judges put their answers.
+
+use crate::engine::End;
+use crate::findings::{Fact, Reason};
+use crate::logic::State;
+use crate::time::Span;
+
+/// Takes the answers of one run, in the order in which they are known.
+pub trait Sink {
+    /// A question was judged in this run. `slack` in fs, negative when broken; `None` where there is no number.
+    fn judged(&mut self, question: u32, broken: bool, slack: Option<i64>);
+    /// A question could not be judged in this run.
+    fn not_judged(&mut self, question: u32, reason: Reason);
+    /// Something was found; at most once a run for each subject.
+    fn fact(&mut self, fact: Fact);
+    /// A moment came. `named` says whether the window is named after it.
+    fn reached(&mut self, moment: u32, named: bool);
+    /// A window ended.
+    fn window(&mut self, window: &Seen<'_>);
+}
+
+/// A window that ended.
+#[derive(Debug)]
+pub struct Seen<'a> {
+    /// The moment that names it.
+    pub moment: u32,
+    /// The state before its step, if it began at rest and without X.
+    pub before: Option<&'a State>,
+    /// Did it begin at rest?
+    pub began_at_rest: bool,
+    /// How it ended.
+    pub end: End,
+    /// The state at its end.
+    pub state: &'a State,
+    /// From the last input change to the last event; for a cut window to its end.
+    pub time: Span,
+    /// A hash of the order in which loop nets changed.
+    pub order: u64,
+}
+
+/// Keeps the facts of a single run, worst first.
+impl Sink for Vec<Fact> {
+    fn judged(&mut self, _question: u32, _broken: bool, _slack: Option<i64>) {}
+    fn not_judged(&mut self, _question: u32, _reason: Reason) {}
+    fn fact(&mut self, fact: Fact) {
+        self.push(fact);
+    }
+    fn reached(&mut self, _moment: u32, _named: bool) {}
+    fn window(&mut self, _window: &Seen<'_>) {}
+}

@@ -1,0 +1,71 @@
+//! Single runs, and the delay-free view.
+
+use super::report::{RunReport, StatesReport};
+use crate::circuit::Circuit;
+use crate::control::Control;
+use crate::engine::{Program, Trace};
+use crate::findings::{Asked, Fact, Judge};
+use crate::instance::{Instance, Which};
+use crate::scenario::Scenario;
+use crate::statics::StateSet;
+
+/// Input vectors whose stable states are listed.
+const VECTORS: usize = 1024;
+/// Stable states listed for one input vector.
+const STATES: usize = 64;
+/// Rows of the state set that are listed.
+const ROWS: usize = 4096;
+/// Stable states looked at to find the fewest state variables.
+const LOOKED_AT: usize = 1 << 16;
+
+/// Runs one case with all judges. `None`: the control cancelled it.
+pub fn run_one(
+    scenario: &Scenario,
+    program: &Program,
+    asked: &Asked,
+    which: Which,
+    control: &Control,
+) -> Option<RunReport> {
+    let instance = Instance::of(scenario, &which);
+    let mut observers = (Trace::default(), Judge::new(scenario, asked, Vec::<Fact>::new()));
+    if !program.machine().run(&instance, control, &mut observers) {
+        return None;
+    }
+    let (trace, judge) = observers;
+    let mut facts = judge.sink;
+    facts.sort_by_key(|fact| (!fact.breaks_rule, fact.subject.kind, std::cmp::Reverse(fact.measure), fact.subject));
+    Some(RunReport { which, instance, trace, facts })
+}
+
+/// All stable states of a circuit. What a budget or limit cuts is said in the report.
+pub fn states(circuit: &Circuit, control: &Control) -> StatesReport {
+    let mut report = StatesReport {
+        count: None,
+        feedback: circuit.feedback().to_vec(),
+        state_variables: Vec::new(),
+        state_variables_exact: false,
+        variables: circuit.inputs().chain(circuit.feedback().iter().copied()).collect(),
+        rows: Vec::new(),
+        rows_truncated: true,
+        inputs: Vec::new(),
+        inputs_truncated: true,
+        vectors: None,
+    };
+    let Ok(set) = StateSet::of(circuit, control) else { return report };
+    report.count = Some(set.count().to_string());
+    let rows = set.rows(ROWS);
+    (report.rows, report.rows_truncated) = (rows.rows, rows.truncated);
+    let mut vectors = set.by_inputs(VECTORS, STATES);
+    report.inputs_truncated = vectors.truncated();
+    for vector in &mut vectors {
+        report.inputs_truncated |= vector.truncated;
+        report.inputs.push((vector.inputs, vector.states));
+    }
+    if let Ok(counts) = set.vector_counts() {
+        report.vectors = Some([counts.none.to_string(), counts.one.to_string(), counts.several.to_string()]);
+    }
+    if let Ok(variables) = set.state_variables(LOOKED_AT) {
+        (report.state_variables, report.state_variables_exact) = (variables.nets, variables.exact);
+    }
+    report
+}

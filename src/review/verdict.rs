@@ -1,0 +1,225 @@
+//! The verdict: broken, undecided, or no failure found in so many draws.
+
+use std::collections::BTreeMap;
+
+use super::report::{Call, Verdict};
+use crate::circuit::NetId;
+use crate::delay::Marginal;
+use crate::findings::{Kind, Question, Reason, RuleKey};
+use crate::scenario::Scenario;
+use crate::sweep::{Finding, SweepReport};
+
+/// The verdict of a sweep.
+pub fn verdict(scenario: &Scenario, sweep: &SweepReport) -> Verdict {
+    let broken = broken(scenario, sweep);
+    let open = open(scenario, sweep);
+    let draws = format!("{} {}", grouped(sweep.samples), draws_word(scenario.plan.draw, sweep.samples));
+    let stimulus = stimulus(scenario);
+    let runts = runts(scenario, sweep);
+    let (call, mut sentence) = if let Some(first) = broken.first() {
+        let more = match broken.len() - 1 {
+            0 => String::new(),
+            1 => ", and 1 more".to_string(),
+            n => format!(", and {n} more"),
+        };
+        (Call::Broken, format!("broken: {first}{more}; Monte Carlo, {draws}, {stimulus}"))
+    } else if let Some(first) = open.first() {
+        let more = if open.len() > 1 { format!(", and {} more reasons", open.len() - 1) } else { String::new() };
+        (Call::Undecided, format!("undecided: {first}{more}; Monte Carlo, {draws}, {stimulus}"))
+    } else {
+        (Call::NoFailureFound, format!("no failure found in {draws} (Monte Carlo), {stimulus}"))
+    };
+    if let Some(runts) = runts {
+        sentence = format!("{sentence}; {runts}");
+    }
+    let reasons = broken.into_iter().chain(open).collect();
+    Verdict { call, sentence, reasons }
+}
+
+fn draws_word(draw: Marginal, n: u64) -> &'static str {
+    match (draw, n) {
+        (Marginal::Corners, 1) => "draw of corners",
+        (Marginal::Corners, _) => "draws of corners",
+        (_, 1) => "draw",
+        _ => "draws",
+    }
+}
+
+/// `for the 5 steps and 2 clocks of this scenario`.
+fn stimulus(scenario: &Scenario) -> String {
+    let plural = |n: usize, word: &str| format!("{n} {word}{}", if n == 1 { "" } else { "s" });
+    let (steps, clocks) = (scenario.stimulus.steps.len(), scenario.stimulus.clocks.len());
+    let what = match (steps, clocks) {
+        (steps, 0) => plural(steps, "step"),
+        (0, clocks) => plural(clocks, "clock"),
+        (steps, clocks) => format!("{} and {}", plural(steps, "step"), plural(clocks, "clock")),
+    };
+    format!("for the {what} of this scenario")
+}
+
+/// A whole number with thousands set apart.
+pub fn grouped(n: u64) -> String {
+    let digits = n.to_string();
+    let mut text = String::new();
+    for (i, digit) in digits.chars().enumerate() {
+        if i > 0 && (digits.len() - i) % 3 == 0 {
+            text.push(',');
+        }
+        text.push(digit);
+    }
+    text
+}
+
+/// What is broken: one sentence for each rule pattern or net, the most important first.
+fn broken(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
+    let mut seen = Vec::new();
+    let mut reasons = Vec::new();
+    for finding in sweep.findings.iter().filter(|finding| finding.breaks_rule) {
+        let subject = finding.subject;
+        let question = subject.question.and_then(|q| sweep.rules.get(q as usize)).map(|rule| &rule.question);
+        let key = (subject.kind, question.map(|q| (q.index, q.name.clone())), subject.net);
+        if seen.contains(&key) {
+            continue;
+        }
+        seen.push(key);
+        reasons.push(sentence(scenario, finding, question));
+    }
+    reasons
+}
+
+fn sentence(scenario: &Scenario, finding: &Finding, question: Option<&Question>) -> String {
+    let subject = finding.subject;
+    let circuit = &scenario.circuit;
+    let net = subject.net.map(|net| format!(" at {}", circuit.name(net)));
+    let what = match (question.and_then(|q| q.name.as_ref()), subject.shape) {
+        (Some(name), _) => format!("\"{name}\" ({})", subject.kind.word()),
+        (None, Some(shape)) => format!("{} {}", shape.word(), subject.kind.word()),
+        (None, None) => {
+            let pattern = question.and_then(|q| q.pattern.as_ref()).filter(|_| subject.kind != Kind::Edges);
+            match pattern {
+                Some(pattern) => format!("{} {}", subject.kind.word(), pattern.words(circuit)),
+                None => subject.kind.word().to_string(),
+            }
+        }
+    };
+    let step = match subject.moment {
+        Some(moment) => format!(" after \"{}\"", scenario.stimulus.moments[moment as usize].label),
+        None => String::new(),
+    };
+    let share = format!(" in {} of {} draws", grouped(finding.count), grouped(finding.of));
+    format!("{what}{}{step}{share}", net.unwrap_or_default())
+}
+
+/// Questions that belong together: a rule, which of several, its net.
+type Group = (RuleKey, u32, Option<NetId>);
+
+/// Why the verdict cannot be better than undecided, whatever else was found.
+fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
+    let mut reasons = Vec::new();
+    if scenario.cannot_run {
+        reasons.push("the circuit has gates whose filter is not analysed yet; nothing was run".to_string());
+    } else if scenario.stimulus.moments.is_empty() {
+        reasons.push("there is no step and no clock, so nothing was asked of the block in motion".to_string());
+    }
+    let mut unsettled = Vec::new();
+    for window in sweep.windows.iter().filter(|window| window.unsettled > 0) {
+        let label = &scenario.stimulus.moments[window.moment as usize].label;
+        unsettled.push(format!("\"{label}\" unsettled at a limit in {} draws", grouped(window.unsettled)));
+    }
+    reasons.extend(unsettled);
+    for finding in sweep.findings.iter().filter(|finding| finding.subject.kind == Kind::Unresolved) {
+        reasons.push(format!("a settled state with an X: {}", sentence(scenario, finding, None)));
+    }
+
+    let mut groups: BTreeMap<Group, (u64, BTreeMap<Reason, u64>, bool, String)> = BTreeMap::new();
+    for rule in &sweep.rules {
+        let question = &rule.question;
+        let group = (question.rule, question.index, question.net);
+        let named = question.moment.is_none_or(|moment| {
+            let window = &sweep.windows[moment as usize];
+            window.named > 0 || window.reached == 0
+        });
+        let entry = groups.entry(group).or_insert_with(|| (0, BTreeMap::new(), false, describe(scenario, question)));
+        entry.0 += rule.judged;
+        entry.2 |= question.written && named;
+        for (reason, count) in &rule.not_judged {
+            let most = entry.1.entry(*reason).or_insert(0);
+            *most = (*most).max(*count);
+        }
+    }
+    for (judged, not_judged, written, what) in groups.values() {
+        if !not_judged.is_empty() && !(scenario.rules.accept_not_judged && *judged > 0) {
+            let each: Vec<String> = not_judged
+                .iter()
+                .map(|(reason, count)| format!("{} in up to {} draws", reason.words(), grouped(*count)))
+                .collect();
+            reasons.push(format!("{what} not judged: {}", each.join(", ")));
+        } else if *judged == 0 && *written && !scenario.cannot_run {
+            reasons.push(format!("{what} was never put to the test"));
+        }
+    }
+    let mut untouched = Vec::new();
+    if scenario.rules.glitch_free_written {
+        untouched.extend(scenario.rules.glitch_free.iter().map(|rule| (RuleKey::GlitchFree, rule.net)));
+    }
+    if scenario.rules.settle_within.is_some() {
+        untouched.extend(scenario.watched.iter().map(|net| (RuleKey::SettleWithin, *net)));
+    }
+    for (rule, net) in untouched {
+        if !sweep.rules.iter().any(|r| r.question.rule == rule && r.question.net == Some(net)) {
+            let net = scenario.circuit.name(net);
+            reasons.push(format!("{} {net} was never put to the test: no step touches it", rule.word()));
+        }
+    }
+    reasons
+}
+
+/// A rule in words: `glitch_free lamp`, `timing "dead time"`.
+fn describe(scenario: &Scenario, question: &Question) -> String {
+    let mut text = question.rule.word().to_string();
+    match (&question.name, question.net, &question.pattern) {
+        (Some(name), _, _) => text.push_str(&format!(" \"{name}\"")),
+        (None, Some(net), _) => text.push_str(&format!(" {}", scenario.circuit.name(net))),
+        (None, None, Some(pattern))
+            if matches!(question.rule, RuleKey::Never | RuleKey::NeverAtRest | RuleKey::Timing) =>
+        {
+            text.push_str(&format!(" {}", pattern.words(&scenario.circuit)));
+        }
+        _ => {}
+    }
+    text
+}
+
+/// Swallowed pulses where a real part may hang, or where somebody looks.
+fn runts(scenario: &Scenario, sweep: &SweepReport) -> Option<String> {
+    let mut at_loops: Vec<&str> = Vec::new();
+    let mut watched: Vec<&str> = Vec::new();
+    for finding in sweep.findings.iter().filter(|finding| finding.subject.kind == Kind::Swallowed) {
+        let Some(net) = finding.subject.net else { continue };
+        let name = scenario.circuit.name(net);
+        if scenario.circuit.in_loop(net) {
+            at_loops.push(name);
+        } else if scenario.watched.contains(&net) {
+            watched.push(name);
+        }
+    }
+    for list in [&mut at_loops, &mut watched] {
+        list.sort_unstable();
+        list.dedup();
+    }
+    let few = |list: &[&str]| match list {
+        [.., _] if list.len() > 4 => format!("{} and {} more", list[..4].join(", "), list.len() - 4),
+        _ => list.join(", "),
+    };
+    let mut parts = Vec::new();
+    if !at_loops.is_empty() {
+        parts.push(format!(
+            "runts at loop nets {}: a real part may hang here (metastable); this model never does",
+            few(&at_loops)
+        ));
+    }
+    if !watched.is_empty() {
+        parts.push(format!("pulses swallowed at watched nets {}", few(&watched)));
+    }
+    (!parts.is_empty()).then(|| parts.join("; "))
+}

@@ -1,0 +1,321 @@
+//! From the integers of a tally to what a sweep says: outcomes, races, shares, intervals, settling figures.
+
+use std::collections::BTreeMap;
+
+use super::report::{Boards, Finding, Outcome, RuleReport, Settling, SweepReport, WindowReport, Worst};
+use super::seen::{Count, Key};
+use super::spread::{self, Spread};
+use super::stats::clopper_pearson;
+use super::tally::{FactTally, Passage, Tally, WindowTally};
+use crate::delay::Marginal;
+use crate::findings::{Asked, Kind, Match, Reason, RuleKey, Subject, matches, matches_any};
+use crate::logic::State;
+use crate::scenario::{Alternative, Permission, Scenario};
+use crate::time::Span;
+
+/// Confidence of every interval.
+const CONFIDENCE: f64 = 0.95;
+/// Bars of a settling histogram, at most.
+const BARS: u64 = 60;
+
+/// Draws the conclusions of a tally.
+pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepReport {
+    let races: Vec<Race> = tally.windows.iter().enumerate().map(|(m, w)| Race::of(scenario, m as u32, w)).collect();
+    let windows = tally.windows.iter().zip(&races).enumerate();
+    let windows: Vec<WindowReport> = windows.map(|(m, (w, race))| window(scenario, asked, m as u32, w, race)).collect();
+
+    let mut rules: Vec<RuleReport> = asked
+        .questions
+        .iter()
+        .zip(&tally.rows)
+        .map(|(question, row)| {
+            let mut not_judged: Vec<(Reason, u64)> = Vec::new();
+            for (reason, count) in Reason::ALL.into_iter().zip(row.not_judged) {
+                if count > 0 {
+                    not_judged.push((reason, count));
+                }
+            }
+            if scenario.cannot_run {
+                not_judged = vec![(Reason::NotAnalysedYet, scenario.plan.samples)];
+            }
+            RuleReport {
+                question: question.clone(),
+                judged: row.judged,
+                broken: row.broken,
+                not_judged,
+                margin: row.margin.map(|(slack, _)| i128::from(slack)),
+                margin_sample: row.margin.map(|(_, sample)| sample),
+            }
+        })
+        .collect();
+
+    let judging = Judging { scenario, tally };
+    let mut findings: Vec<Finding> =
+        tally.facts.iter().map(|(subject, fact)| judging.finding(*subject, fact, judging.judged(subject))).collect();
+    for (m, race) in races.iter().enumerate() {
+        let moment = Some(m as u32);
+        let question = asked.find(RuleKey::CriticalRace, 0, None, moment);
+        let subject = |kind| Subject { kind, shape: None, question, net: None, moment };
+        let fact = |strays: &Strays, breaks_rule| FactTally {
+            breaks_rule,
+            count: strays.count,
+            first: strays.first,
+            worst: None,
+            boards_failing: 0,
+            worst_board: (0, 1),
+        };
+        if let Some(strays) = &race.critical {
+            let breaks = race.breaks_rule;
+            let found = fact(strays, breaks);
+            findings.push(judging.finding(subject(Kind::CriticalRace), &found, race.of));
+            if let (true, Some(question)) = (breaks, question) {
+                rules[question as usize].broken = strays.count;
+            }
+        }
+        if let Some(strays) = &race.non_critical {
+            let kind = Subject { question: None, ..subject(Kind::NonCriticalRace) };
+            findings.push(judging.finding(kind, &fact(strays, false), race.of));
+        }
+    }
+    findings.sort_by(|a, b| {
+        let key = |f: &Finding| (!f.breaks_rule, f.subject.kind, std::cmp::Reverse(f.count), f.subject);
+        key(a).cmp(&key(b))
+    });
+    SweepReport { plan: scenario.plan, samples: tally.samples, windows, rules, findings }
+}
+
+/// What the samples of one moment did from each state before, beyond the commonest.
+#[derive(Debug, Default)]
+struct Race {
+    /// Settled windows that began at rest.
+    of: u64,
+    critical: Option<Strays>,
+    breaks_rule: bool,
+    non_critical: Option<Strays>,
+}
+
+/// Samples that did not do the commonest thing.
+#[derive(Clone, Copy, Debug)]
+struct Strays {
+    count: u64,
+    first: u64,
+}
+
+impl Strays {
+    /// Of several things: all but the commonest; of equally common ones that of the lower sample is the commonest.
+    fn of(counts: &[Count]) -> Option<Strays> {
+        let commonest = counts.iter().enumerate().min_by_key(|(_, c)| (std::cmp::Reverse(c.count), c.first))?.0;
+        let others = counts.iter().enumerate().filter(|(i, _)| *i != commonest).map(|(_, c)| c);
+        let first = others.clone().map(|c| c.first).min()?;
+        Some(Strays { count: others.map(|c| c.count).sum(), first })
+    }
+
+    fn join(ours: &mut Option<Strays>, theirs: Option<Strays>) {
+        *ours = match (*ours, theirs) {
+            (Some(a), Some(b)) => Some(Strays { count: a.count + b.count, first: a.first.min(b.first) }),
+            (a, b) => a.or(b),
+        };
+    }
+}
+
+impl Race {
+    fn of(scenario: &Scenario, moment: u32, window: &WindowTally) -> Race {
+        let mut groups: BTreeMap<&State, Vec<(&Passage, Count)>> = BTreeMap::new();
+        for (passage, count) in window.passages.iter() {
+            if let Some(before) = &passage.before
+                && !passage.after.has_unknown()
+            {
+                groups.entry(before).or_default().push((passage, count));
+            }
+        }
+        let mut orders: BTreeMap<u64, Vec<Count>> = BTreeMap::new();
+        for ((passage, _), count) in window.orders.iter() {
+            orders.entry(*passage).or_default().push(count);
+        }
+        let alternatives = expected(scenario, moment);
+        let forbidden = scenario.rules.critical_race == Permission::Forbidden;
+        let mut race = Race::default();
+        for outcomes in groups.values() {
+            let counts: Vec<Count> = outcomes.iter().map(|(_, count)| *count).collect();
+            race.of += counts.iter().map(|c| c.count).sum::<u64>();
+            if let [(passage, _)] = outcomes[..] {
+                if let Some(orders) = orders.get(&passage.hash()) {
+                    Strays::join(&mut race.non_critical, Strays::of(orders));
+                }
+                continue;
+            }
+            Strays::join(&mut race.critical, Strays::of(&counts));
+            let states: Vec<&State> = outcomes.iter().map(|(passage, _)| &passage.after).collect();
+            race.breaks_rule |= forbidden && !each_has_its_own(&states, &alternatives);
+        }
+        race
+    }
+}
+
+/// The alternatives that the step of a moment expects; none where it expects nothing.
+fn expected(scenario: &Scenario, moment: u32) -> Vec<Alternative> {
+    let step = scenario.stimulus.step_of(&scenario.stimulus.moments[moment as usize]);
+    step.and_then(|step| step.expect.as_ref()).map_or_else(Vec::new, |expect| expect.alternatives.clone())
+}
+
+/// Can every state be given an alternative of its own that it matches (augmenting paths; Kuhn 1955)?
+fn each_has_its_own(states: &[&State], alternatives: &[Alternative]) -> bool {
+    fn place(s: usize, fits: &[Vec<usize>], taken: &mut [Option<usize>], tried: &mut [bool]) -> bool {
+        for &a in &fits[s] {
+            if !std::mem::replace(&mut tried[a], true) && taken[a].is_none_or(|other| place(other, fits, taken, tried))
+            {
+                taken[a] = Some(s);
+                return true;
+            }
+        }
+        false
+    }
+    if states.len() > alternatives.len() {
+        return false;
+    }
+    let fit = |state: &&State| {
+        let each = alternatives.iter().enumerate().filter(|(_, a)| matches(a, state) == Match::Yes);
+        each.map(|(i, _)| i).collect()
+    };
+    let fits: Vec<Vec<usize>> = states.iter().map(fit).collect();
+    let mut taken = vec![None; alternatives.len()];
+    (0..states.len()).all(|s| place(s, &fits, &mut taken, &mut vec![false; alternatives.len()]))
+}
+
+fn window(scenario: &Scenario, asked: &Asked, moment: u32, tally: &WindowTally, race: &Race) -> WindowReport {
+    let mut states: BTreeMap<&State, Count> = BTreeMap::new();
+    for (passage, count) in tally.passages.iter() {
+        let all = states.entry(&passage.after).or_insert(Count { count: 0, first: u64::MAX });
+        all.count += count.count;
+        all.first = all.first.min(count.first);
+    }
+    let alternatives = expected(scenario, moment);
+    let forbidden_rest = |state: &State| {
+        scenario.rules.never_at_rest.iter().enumerate().any(|(i, rule)| {
+            let asked = asked.find(RuleKey::NeverAtRest, i as u32, None, Some(moment)).is_some();
+            asked && matches(&rule.state, state) == Match::Yes
+        })
+    };
+    let breaks = |state: &State| {
+        (!alternatives.is_empty() && matches_any(&alternatives, state) == Match::No)
+            || forbidden_rest(state)
+            || (race.breaks_rule && alternatives.is_empty())
+    };
+    let mut outcomes: Vec<Outcome> = states
+        .into_iter()
+        .map(|(state, count)| Outcome {
+            state: state.clone(),
+            count: count.count,
+            first: count.first,
+            breaks_rule: breaks(state),
+        })
+        .collect();
+    outcomes.sort_by_key(|outcome| (std::cmp::Reverse(outcome.count), outcome.first));
+    WindowReport {
+        moment,
+        reached: tally.reached,
+        named: tally.named,
+        outcomes,
+        outcomes_truncated: tally.passages.is_truncated(),
+        settled: tally.settled,
+        unsettled: tally.unsettled,
+        oscillating: tally.oscillating,
+        cut: tally.cut,
+        began_before_rest: tally.began_before_rest,
+        settling: settling(&tally.settling, &tally.cut_after),
+    }
+}
+
+fn settling(settled: &Spread, cut: &Spread) -> Option<Settling> {
+    let parts = [settled, cut];
+    let median = spread::nearest_rank(&parts, 0.5)?;
+    let p99 = spread::nearest_rank(&parts, 0.99)?;
+    let max = settled.max().max(cut.max())?;
+    // a cut window that was not longer than a figure could have been longer than it
+    let at_least = |figure: Span| cut.min().is_some_and(|shortest| shortest <= figure);
+    let exact = settled.is_exact() && cut.is_exact();
+    Some(Settling {
+        min: settled.min(),
+        median,
+        median_at_least: at_least(median),
+        p99,
+        p99_at_least: at_least(p99),
+        max,
+        max_at_least: !cut.is_empty(),
+        resolution: if exact { 0.0 } else { spread::RESOLUTION },
+        bars: bars(settled),
+    })
+}
+
+/// A histogram of at most [`BARS`] bars of one round width.
+fn bars(spread: &Spread) -> Vec<(Span, Span, u64)> {
+    let (Some(min), Some(max)) = (spread.min(), spread.max()) else { return Vec::new() };
+    let needed = ((max - min).fs() / BARS).max(1);
+    let mut width = 1u64;
+    'found: loop {
+        for step in [1, 2, 5] {
+            if width * step >= needed {
+                width *= step;
+                break 'found;
+            }
+        }
+        width *= 10;
+    }
+    let first = min.fs() / width;
+    let mut counts = vec![0u64; (max.fs() / width - first + 1) as usize];
+    for (from, _, count) in spread.classes() {
+        counts[(from.max(min.fs()) / width - first) as usize] += count;
+    }
+    let bar = |(i, count)| {
+        let from = (first + i as u64) * width;
+        (Span::from_fs(from), Span::from_fs(from + width), count)
+    };
+    counts.into_iter().enumerate().map(bar).collect()
+}
+
+struct Judging<'a> {
+    scenario: &'a Scenario,
+    tally: &'a Tally,
+}
+
+impl Judging<'_> {
+    /// Of how many samples a finding's count is a share.
+    fn judged(&self, subject: &Subject) -> u64 {
+        let named = || match subject.moment {
+            Some(moment) => self.tally.windows[moment as usize].reached,
+            None => self.tally.samples,
+        };
+        match (subject.kind, subject.question) {
+            (Kind::Swallowed | Kind::Oscillation | Kind::Unsettled | Kind::Unresolved, _) | (_, None) => named(),
+            (_, Some(question)) => self.tally.rows[question as usize].judged,
+        }
+    }
+
+    fn finding(&self, subject: Subject, fact: &FactTally, of: u64) -> Finding {
+        let plan = &self.scenario.plan;
+        let corners = plan.draw == Marginal::Corners;
+        let several = plan.tries > 1;
+        let race = matches!(subject.kind, Kind::CriticalRace | Kind::NonCriticalRace);
+        let share = (!corners && of > 0).then(|| fact.count as f64 / of as f64);
+        Finding {
+            subject,
+            breaks_rule: fact.breaks_rule,
+            count: fact.count,
+            of,
+            share,
+            interval: share.filter(|_| !several).and_then(|_| clopper_pearson(fact.count, of, CONFIDENCE)),
+            boards: (several && !race && !corners).then(|| Boards {
+                of: self.tally.boards,
+                failing: fact.boards_failing,
+                worst_share: fact.worst_board.0 as f64 / fact.worst_board.1 as f64,
+            }),
+            worst: fact.worst.map(|(measure, _)| match subject.kind {
+                Kind::Swallowed => Worst::Share(measure.as_share()),
+                _ => Worst::Time(Span::from_fs(measure.value)),
+            }),
+            tie: None,
+            sample: Some(fact.first),
+            worst_sample: Some(fact.worst.map_or(fact.first, |(_, sample)| sample)),
+        }
+    }
+}

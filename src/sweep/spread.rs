@@ -1,0 +1,215 @@
+//! How times spread: bounded memory, mergeable in any order.
+//!
+//! Up to [`DISTINCT`] different values are kept exactly; beyond, values are counted in classes of 1/1024 of an octave.
+//! Both forms depend only on the values seen, so neither the split nor the order of a merge can show.
+
+use std::collections::BTreeMap;
+
+use serde::{Deserialize, Serialize};
+
+use crate::time::Span;
+
+/// Different values kept exactly.
+const DISTINCT: usize = 1024;
+/// Classes an octave, as a power of two.
+const CLASS_BITS: u32 = 10;
+/// Classes an octave.
+const CLASSES: usize = 1 << CLASS_BITS;
+
+/// Relative width of a class: median and percentiles are lower edges of classes.
+pub(super) const RESOLUTION: f64 = 1.0 / CLASSES as f64;
+
+/// The spread of some times.
+#[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Spread {
+    n: u64,
+    min: Option<u64>,
+    max: Option<u64>,
+    /// Value to count; `None` once there are too many different ones.
+    exact: Option<BTreeMap<u64, u64>>,
+    /// Octave to counts of its classes.
+    pages: BTreeMap<u8, Vec<u64>>,
+}
+
+fn class_of(fs: u64) -> (u8, usize) {
+    let octave = (u64::BITS - fs.leading_zeros()).saturating_sub(CLASS_BITS + 1);
+    let class = if fs < CLASSES as u64 { fs as usize } else { (fs >> octave) as usize - CLASSES };
+    // octave 0 holds the values below 1024 exactly; its successor those below 2048
+    if fs < CLASSES as u64 { (0, class) } else { (octave as u8 + 1, class) }
+}
+
+fn lower_edge(octave: u8, class: usize) -> u64 {
+    match octave {
+        0 => class as u64,
+        _ => (CLASSES as u64 + class as u64) << (octave - 1),
+    }
+}
+
+fn width(octave: u8) -> u64 {
+    1 << octave.saturating_sub(1)
+}
+
+impl Spread {
+    /// Nothing yet.
+    pub fn new() -> Spread {
+        Spread { exact: Some(BTreeMap::new()), ..Spread::default() }
+    }
+
+    /// One more time.
+    pub fn add(&mut self, span: Span) {
+        self.add_many(span.fs(), 1);
+    }
+
+    fn add_many(&mut self, fs: u64, count: u64) {
+        self.n += count;
+        self.min = Some(self.min.map_or(fs, |min| min.min(fs)));
+        self.max = self.max.max(Some(fs));
+        if let Some(exact) = &mut self.exact {
+            *exact.entry(fs).or_insert(0) += count;
+            if exact.len() <= DISTINCT {
+                return;
+            }
+            for (fs, count) in self.exact.take().into_iter().flatten() {
+                self.count(fs, count);
+            }
+        } else {
+            self.count(fs, count);
+        }
+    }
+
+    fn count(&mut self, fs: u64, count: u64) {
+        let (octave, class) = class_of(fs);
+        self.pages.entry(octave).or_insert_with(|| vec![0; CLASSES])[class] += count;
+    }
+
+    /// All times of another spread.
+    pub fn merge(&mut self, other: &Spread) {
+        if let Some(exact) = &other.exact {
+            for (fs, count) in exact {
+                self.add_many(*fs, *count);
+            }
+            return;
+        }
+        for (fs, count) in self.exact.take().into_iter().flatten() {
+            self.count(fs, count);
+        }
+        for (octave, page) in &other.pages {
+            let ours = self.pages.entry(*octave).or_insert_with(|| vec![0; CLASSES]);
+            for (ours, theirs) in ours.iter_mut().zip(page) {
+                *ours += theirs;
+            }
+        }
+        self.n += other.n;
+        self.min = [self.min, other.min].into_iter().flatten().min();
+        self.max = self.max.max(other.max);
+    }
+
+    /// Number of times.
+    pub fn len(&self) -> u64 {
+        self.n
+    }
+
+    /// No time at all?
+    pub fn is_empty(&self) -> bool {
+        self.n == 0
+    }
+
+    /// Shortest.
+    pub fn min(&self) -> Option<Span> {
+        self.min.map(Span::from_fs)
+    }
+
+    /// Longest.
+    pub fn max(&self) -> Option<Span> {
+        self.max.map(Span::from_fs)
+    }
+
+    /// Are values kept exactly?
+    pub fn is_exact(&self) -> bool {
+        self.exact.is_some()
+    }
+
+    /// Classes with a count: (from, width, count), in order. A width of 0 is an exact value.
+    pub fn classes(&self) -> Vec<(u64, u64, u64)> {
+        match &self.exact {
+            Some(exact) => exact.iter().map(|(fs, count)| (*fs, 0, *count)).collect(),
+            None => {
+                let pages = self.pages.iter();
+                let each = pages.flat_map(|(octave, page)| {
+                    let counted = page.iter().enumerate().filter(|(_, count)| **count > 0);
+                    counted.map(|(class, count)| (lower_edge(*octave, class), width(*octave), *count))
+                });
+                each.collect()
+            }
+        }
+    }
+}
+
+/// The value of nearest rank `share` (0 to 1) of two spreads taken together, as the lower edge of its class.
+pub(super) fn nearest_rank(parts: &[&Spread], share: f64) -> Option<Span> {
+    let n: u64 = parts.iter().map(|part| part.n).sum();
+    if n == 0 {
+        return None;
+    }
+    let mut together = Spread::new();
+    parts.iter().for_each(|part| together.merge(part));
+    let rank = ((share * n as f64).ceil() as u64).clamp(1, n);
+    let mut below = 0;
+    for (from, _, count) in together.classes() {
+        below += count;
+        if below >= rank {
+            return Some(Span::from_fs(from.max(together.min.unwrap_or(0))));
+        }
+    }
+    together.max()
+}
+
+#[cfg(test)]
+mod tests {
+    use proptest::prelude::*;
+
+    use super::*;
+
+    #[test]
+    fn classes_cover_every_value_once() {
+        for fs in (0..5000).chain([1 << 20, (1 << 40) + 12_345, (1 << 62) - 1, u64::MAX]) {
+            let (octave, class) = class_of(fs);
+            let edge = lower_edge(octave, class);
+            assert!(class < CLASSES && edge <= fs && fs - edge < width(octave), "{fs}");
+            assert!(width(octave) as f64 <= RESOLUTION * fs.max(CLASSES as u64) as f64, "{fs}");
+        }
+    }
+
+    proptest! {
+        #![proptest_config(ProptestConfig { cases: 60, failure_persistence: None, rng_seed: proptest::test_runner::RngSeed::Fixed(3), ..ProptestConfig::default() })]
+        #[test]
+        fn merging_any_split_in_any_order_is_the_whole(values in proptest::collection::vec(0u64..1_000_000, 0..4000), cuts in proptest::collection::vec(0usize..4000, 0..5), turn in any::<bool>()) {
+            let mut whole = Spread::new();
+            values.iter().for_each(|v| whole.add(Span::from_fs(*v)));
+            let mut cuts: Vec<usize> = cuts.into_iter().map(|c| c.min(values.len())).chain([0, values.len()]).collect();
+            cuts.sort_unstable();
+            let mut parts: Vec<Spread> = cuts.windows(2).map(|w| {
+                let mut part = Spread::new();
+                values[w[0]..w[1]].iter().for_each(|v| part.add(Span::from_fs(*v)));
+                part
+            }).collect();
+            if turn { parts.reverse(); }
+            let mut merged = Spread::new();
+            parts.iter().for_each(|part| merged.merge(part));
+            prop_assert_eq!(&merged, &whole);
+            let mut sorted = values.clone();
+            sorted.sort_unstable();
+            for share in [0.5, 0.99, 1.0] {
+                let rank = ((share * sorted.len() as f64).ceil() as usize).max(1);
+                let told = nearest_rank(&[&whole], share).map(Span::fs);
+                match sorted.get(rank - 1) {
+                    None => prop_assert_eq!(told, None),
+                    Some(true_value) => {
+                        let told = told.unwrap();
+                        prop_assert!(told <= *true_value && (*true_value - told) as f64 <= RESOLUTION * *true_value as f64, "{} {}", told, true_value);
+                    }
+                }
+            }
+        }
+    }
+}

@@ -1,0 +1,378 @@
+//! The tally of many runs: integers only, mergeable in any split and order.
+
+use std::collections::BTreeMap;
+
+use serde::{Deserialize, Serialize};
+
+use super::seen::{Count, Key, Seen, mix};
+use super::spread::Spread;
+use crate::engine::End;
+use crate::findings::{Asked, Fact, Measure, Reason, Seen as SeenWindow, Sink, Subject};
+use crate::logic::State;
+use crate::scenario::Scenario;
+
+/// From which state to which: the state before a step (`None` in windows that began before rest), and the settled one.
+#[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
+pub struct Passage {
+    /// Before.
+    pub before: Option<State>,
+    /// Settled.
+    pub after: State,
+}
+
+fn hash_state(hash: u64, state: &State) -> u64 {
+    state.ones.words().iter().chain(state.unknown.words()).fold(hash, |hash, word| mix(hash, *word))
+}
+
+impl Key for Passage {
+    fn hash(&self) -> u64 {
+        let start = self.before.as_ref().map_or(1, |before| hash_state(2, before));
+        hash_state(start, &self.after)
+    }
+}
+
+/// What happened in the windows of one moment.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct WindowTally {
+    /// Samples in which the moment came.
+    pub reached: u64,
+    /// Samples in which it named the window.
+    pub named: u64,
+    /// Windows by how they ended.
+    pub settled: u64,
+    /// A limit ended them.
+    pub unsettled: u64,
+    /// They recurred.
+    pub oscillating: u64,
+    /// The next step ended them.
+    pub cut: u64,
+    /// Windows that began with events pending.
+    pub began_before_rest: u64,
+    /// Settled states, by the state before.
+    pub passages: Seen<Passage>,
+    /// Orders of loop nets, by the hash of the passage.
+    pub orders: Seen<(u64, u64)>,
+    /// Settling times of settled windows.
+    pub settling: Spread,
+    /// Lengths of cut windows.
+    pub cut_after: Spread,
+    #[serde(skip)]
+    streak: Streak,
+}
+
+/// The passage of the samples just before, not yet in the tally: most samples do what the last one did.
+#[derive(Clone, Debug, Default)]
+struct Streak {
+    passage: Option<Passage>,
+    has_before: bool,
+    hash: u64,
+    order: u64,
+    count: Option<Count>,
+}
+
+impl PartialEq for Streak {
+    fn eq(&self, _: &Streak) -> bool {
+        true
+    }
+}
+
+/// Answers to one question.
+#[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+pub struct RowTally {
+    /// Samples judged.
+    pub judged: u64,
+    /// Samples that broke it.
+    pub broken: u64,
+    /// Samples not judged, by [`Reason::ALL`].
+    pub not_judged: [u64; Reason::ALL.len()],
+    /// The worst slack, and the lowest sample with it.
+    pub margin: Option<(i64, u64)>,
+}
+
+/// How often something was found.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+pub struct FactTally {
+    /// Does it break a rule?
+    pub breaks_rule: bool,
+    /// Samples that show it.
+    pub count: u64,
+    /// The lowest of them.
+    pub first: u64,
+    /// The worst measure, and the lowest sample with it.
+    pub worst: Option<(Measure, u64)>,
+    /// Boards that ever show it; only complete boards, and only with several tries a board.
+    pub boards_failing: u64,
+    /// Samples that show it on the worst board, and the tries of that board.
+    pub worst_board: (u64, u64),
+}
+
+/// A board of which not all tries are in yet.
+#[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+struct PartBoard {
+    samples: u64,
+    facts: BTreeMap<Subject, u64>,
+}
+
+/// The tally of some samples of a sweep.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct Tally {
+    /// Samples in it.
+    pub samples: u64,
+    /// One a moment.
+    pub windows: Vec<WindowTally>,
+    /// One a question.
+    pub rows: Vec<RowTally>,
+    /// What was found.
+    pub facts: BTreeMap<Subject, FactTally>,
+    /// Complete boards in it, with several tries a board.
+    pub boards: u64,
+    planned: u64,
+    tries: u64,
+    part_boards: BTreeMap<u64, PartBoard>,
+    #[serde(skip)]
+    sample: u64,
+    #[serde(skip)]
+    board: Option<u64>,
+}
+
+fn merge_worst<T: Ord + Copy>(ours: &mut Option<(T, u64)>, theirs: Option<(T, u64)>, worse: fn(&T, &T) -> bool) {
+    let Some(new) = theirs else { return };
+    match ours {
+        Some(old) if !(worse(&new.0, &old.0) || (new.0 == old.0 && new.1 < old.1)) => {}
+        _ => *ours = Some(new),
+    }
+}
+
+impl WindowTally {
+    fn new() -> WindowTally {
+        WindowTally {
+            reached: 0,
+            named: 0,
+            settled: 0,
+            unsettled: 0,
+            oscillating: 0,
+            cut: 0,
+            began_before_rest: 0,
+            passages: Seen::default(),
+            orders: Seen::default(),
+            settling: Spread::new(),
+            cut_after: Spread::new(),
+            streak: Streak::default(),
+        }
+    }
+
+    fn passed(&mut self, seen: &SeenWindow<'_>, sample: u64) {
+        let streak = &mut self.streak;
+        let same = |passage: &Passage| {
+            passage.after == *seen.state && passage.before.as_ref().is_none_or(|before| Some(before) == seen.before)
+        };
+        let known = streak.has_before == seen.before.is_some() && streak.passage.as_ref().is_some_and(same);
+        if known && streak.order == seen.order {
+            let count = streak.count.get_or_insert(Count { count: 0, first: sample });
+            count.count += 1;
+            count.first = count.first.min(sample);
+            return;
+        }
+        self.flush();
+        let streak = &mut self.streak;
+        if !known {
+            match &mut streak.passage {
+                // reuse the memory of the last one
+                Some(Passage { before: Some(before), after }) if seen.before.is_some() => {
+                    before.copy_from(seen.before.unwrap_or(seen.state));
+                    after.copy_from(seen.state);
+                }
+                Some(Passage { before: None, after }) if seen.before.is_none() => after.copy_from(seen.state),
+                other => *other = Some(Passage { before: seen.before.cloned(), after: seen.state.clone() }),
+            }
+            streak.has_before = seen.before.is_some();
+            streak.hash = streak.passage.as_ref().map_or(0, Key::hash);
+        }
+        streak.order = seen.order;
+        streak.count = Some(Count { count: 1, first: sample });
+    }
+
+    fn flush(&mut self) {
+        if let (Some(passage), Some(count)) = (&self.streak.passage, self.streak.count.take()) {
+            self.passages.add(passage, count.count, count.first);
+            if self.streak.has_before {
+                self.orders.add(&(self.streak.hash, self.streak.order), count.count, count.first);
+            }
+        }
+    }
+
+    fn merge(&mut self, other: &WindowTally) {
+        self.reached += other.reached;
+        self.named += other.named;
+        self.settled += other.settled;
+        self.unsettled += other.unsettled;
+        self.oscillating += other.oscillating;
+        self.cut += other.cut;
+        self.began_before_rest += other.began_before_rest;
+        self.passages.merge(&other.passages);
+        self.orders.merge(&other.orders);
+        self.settling.merge(&other.settling);
+        self.cut_after.merge(&other.cut_after);
+    }
+}
+
+impl FactTally {
+    fn new(breaks_rule: bool) -> FactTally {
+        let worst_board = (0, 1);
+        FactTally { breaks_rule, count: 0, first: u64::MAX, worst: None, boards_failing: 0, worst_board }
+    }
+
+    fn board(&mut self, failing: u64, tries: u64) {
+        self.boards_failing += 1;
+        let (worst, of) = self.worst_board;
+        if u128::from(failing) * u128::from(of) > u128::from(worst) * u128::from(tries) {
+            self.worst_board = (failing, tries);
+        }
+    }
+
+    fn merge(&mut self, other: &FactTally) {
+        self.count += other.count;
+        self.first = self.first.min(other.first);
+        merge_worst(&mut self.worst, other.worst, |new, old| new > old);
+        let failing = self.boards_failing + other.boards_failing;
+        if other.boards_failing > 0 {
+            self.board(other.worst_board.0, other.worst_board.1);
+        }
+        self.boards_failing = failing;
+    }
+}
+
+impl Tally {
+    /// An empty tally for a scenario and what it asks.
+    pub fn new(scenario: &Scenario, asked: &Asked) -> Tally {
+        Tally {
+            samples: 0,
+            windows: scenario.stimulus.moments.iter().map(|_| WindowTally::new()).collect(),
+            rows: vec![RowTally::default(); asked.questions.len()],
+            facts: BTreeMap::new(),
+            boards: 0,
+            planned: scenario.plan.samples,
+            tries: scenario.plan.tries,
+            part_boards: BTreeMap::new(),
+            sample: 0,
+            board: None,
+        }
+    }
+
+    /// The next answers are those of this sample. Samples of one tally come in rising order.
+    pub fn begin(&mut self, sample: u64) {
+        self.sample = sample;
+        self.samples += 1;
+        if self.tries > 1 {
+            let board = sample / self.tries;
+            if self.board != Some(board) {
+                self.end_board();
+                self.board = Some(board);
+            }
+            self.part_boards.entry(board).or_default().samples += 1;
+        }
+    }
+
+    /// All samples are in: what waits is added.
+    pub fn finish(&mut self) {
+        self.end_board();
+        self.windows.iter_mut().for_each(WindowTally::flush);
+    }
+
+    fn end_board(&mut self) {
+        if let Some(board) = self.board.take() {
+            self.fold_board(board);
+        }
+    }
+
+    /// Counts a board of which all tries are in.
+    fn fold_board(&mut self, board: u64) {
+        let tries = self.tries.min(self.planned.saturating_sub(board * self.tries));
+        if self.part_boards.get(&board).is_none_or(|part| part.samples < tries) {
+            return;
+        }
+        let Some(part) = self.part_boards.remove(&board) else { return };
+        self.boards += 1;
+        for (subject, count) in part.facts {
+            if let Some(fact) = self.facts.get_mut(&subject) {
+                fact.board(count, part.samples);
+            }
+        }
+    }
+
+    /// Adds the finished tally of other samples of the same sweep.
+    pub fn merge(&mut self, other: &Tally) {
+        self.samples += other.samples;
+        for (ours, theirs) in self.windows.iter_mut().zip(&other.windows) {
+            ours.merge(theirs);
+        }
+        for (ours, theirs) in self.rows.iter_mut().zip(&other.rows) {
+            ours.judged += theirs.judged;
+            ours.broken += theirs.broken;
+            for (ours, theirs) in ours.not_judged.iter_mut().zip(&theirs.not_judged) {
+                *ours += theirs;
+            }
+            merge_worst(&mut ours.margin, theirs.margin, |new, old| new < old);
+        }
+        for (subject, theirs) in &other.facts {
+            self.facts.entry(*subject).or_insert_with(|| FactTally::new(theirs.breaks_rule)).merge(theirs);
+        }
+        self.boards += other.boards;
+        for (board, theirs) in &other.part_boards {
+            let ours = self.part_boards.entry(*board).or_default();
+            ours.samples += theirs.samples;
+            for (subject, count) in &theirs.facts {
+                *ours.facts.entry(*subject).or_insert(0) += count;
+            }
+            self.fold_board(*board);
+        }
+    }
+}
+
+impl Sink for Tally {
+    fn judged(&mut self, question: u32, broken: bool, slack: Option<i64>) {
+        let row = &mut self.rows[question as usize];
+        row.judged += 1;
+        row.broken += u64::from(broken);
+        merge_worst(&mut row.margin, slack.map(|slack| (slack, self.sample)), |new, old| new < old);
+    }
+
+    fn not_judged(&mut self, question: u32, reason: Reason) {
+        self.rows[question as usize].not_judged[reason as usize] += 1;
+    }
+
+    fn fact(&mut self, fact: Fact) {
+        let tally = self.facts.entry(fact.subject).or_insert_with(|| FactTally::new(fact.breaks_rule));
+        tally.count += 1;
+        tally.first = tally.first.min(self.sample);
+        merge_worst(&mut tally.worst, fact.measure.map(|measure| (measure, self.sample)), |new, old| new > old);
+        if let Some(board) = self.board {
+            *self.part_boards.entry(board).or_default().facts.entry(fact.subject).or_insert(0) += 1;
+        }
+    }
+
+    fn reached(&mut self, moment: u32, named: bool) {
+        let window = &mut self.windows[moment as usize];
+        window.reached += 1;
+        window.named += u64::from(named);
+    }
+
+    fn window(&mut self, seen: &SeenWindow<'_>) {
+        let sample = self.sample;
+        let window = &mut self.windows[seen.moment as usize];
+        window.began_before_rest += u64::from(!seen.began_at_rest);
+        match seen.end {
+            End::Settled => {
+                window.settled += 1;
+                window.settling.add(seen.time);
+                window.passed(seen, sample);
+            }
+            End::Oscillating { .. } => window.oscillating += 1,
+            End::Unsettled(_) => window.unsettled += 1,
+            End::Cut => {
+                window.cut += 1;
+                window.cut_after.add(seen.time);
+            }
+        }
+    }
+}

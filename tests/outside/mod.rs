@@ -1,0 +1,10 @@
+//! Checks against what others found: published tables, or programs that share no code with ours. Every test names its
+//! source. \[PAGE …\] marks a page on which the value was seen, \[computed\] a value from an independent throw-away
+//! program or by hand, "from memory" a source that was not at hand, "common practice, no source" a fact of the trade.
+
+mod engine;
+mod large_networks;
+mod networks;
+mod random_networks;
+mod small_networks;
+mod stable_states;

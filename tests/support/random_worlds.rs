@@ -1,0 +1,249 @@
+//! Random small circuits with random stimulus, by number: the same number gives the same case on every machine.
+
+use rand::seq::IndexedRandom;
+use rand::{RngExt, SeedableRng};
+use rand_chacha::ChaCha8Rng;
+use stillgate::circuit::{Expr, Function, NetId};
+use stillgate::delay::{DelayRange, Filter};
+use stillgate::instance::{Instance, Which};
+use stillgate::logic::Bits;
+use stillgate::scenario::{Begin, Bounce, Clock, Mark, Place, Scenario};
+
+use super::world::{Gate, World, exact, fs, stable_states};
+
+/// What a batch of random cases is made of.
+#[derive(Clone, Copy, Debug)]
+pub struct Kind {
+    pub gates: (usize, usize),
+    pub filters: Filters,
+    pub begin: Start,
+    pub wires: f64,
+    pub delays: Lengths,
+    pub steps: (usize, usize),
+    pub clocks: bool,
+    pub limits: &'static [u64],
+    pub rings: bool,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Filters {
+    Inertial,
+    Transport,
+    Mixed,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Start {
+    Rest,
+    Random,
+    Unknown,
+}
+
+#[derive(Clone, Copy, Debug)]
+pub enum Lengths {
+    /// 1 to 4 fs: everything meets everything.
+    Ties,
+    /// Up to 40 fs.
+    Short,
+    /// Up to 100,000 fs: hardly anything meets.
+    Wide,
+}
+
+impl Lengths {
+    fn draw(self, rng: &mut ChaCha8Rng) -> u64 {
+        match self {
+            Lengths::Ties => rng.random_range(1..=4),
+            Lengths::Short => rng.random_range(1..=40),
+            Lengths::Wide => rng.random_range(1..=100_000),
+        }
+    }
+}
+
+fn function(rng: &mut ChaCha8Rng, nets: &[String]) -> (Function, Vec<String>) {
+    let choice = rng.random_range(0..12);
+    if choice >= 10 {
+        // an expression over up to four nets, some of them twice
+        let nets: Vec<&String> = (0..rng.random_range(1..=4)).map(|_| nets.choose(rng).unwrap()).collect();
+        let mut text = String::new();
+        for i in 0..rng.random_range(1..=6) {
+            if i > 0 {
+                text.push_str([" & ", " | ", " ^ "].choose(rng).unwrap());
+            }
+            let (open, close) = [("", ""), ("!", ""), ("!(1 & ", ")")].choose(rng).unwrap();
+            text.push_str(&format!("{open}{}{close}", nets.choose(rng).unwrap()));
+        }
+        let expr = Expr::parse(&text).unwrap();
+        let pins = expr.nets().iter().map(ToString::to_string).collect();
+        return (Function::Expr(expr), pins);
+    }
+    let function = Function::LISTED[choice].clone();
+    let pins = match function {
+        Function::Buf | Function::Not => 1,
+        Function::Mux => 3,
+        Function::Majority => [3, 5].choose(rng).copied().unwrap(),
+        _ => rng.random_range(2..=4),
+    };
+    (function, (0..pins).map(|_| nets.choose(rng).unwrap().clone()).collect())
+}
+
+/// A ring of inverters and buffers with an odd number of inversions, all its gates new; returns a net of it.
+fn ring(world: &mut World, rng: &mut ChaCha8Rng, name: &str, lengths: Lengths) -> String {
+    let gates = rng.random_range(1..=3);
+    for i in 0..gates {
+        let function = if i == 0 { Function::Not } else { Function::Buf };
+        let pin = format!("{name}{}", (i + gates - 1) % gates);
+        let (rise, fall) = (lengths.draw(rng), lengths.draw(rng));
+        world.gate_edges(&format!("{name}{i}"), function, &[&pin], rise, fall);
+    }
+    format!("{name}0")
+}
+
+fn world(rng: &mut ChaCha8Rng, kind: Kind) -> World {
+    let mut world = World::new();
+    for i in 0..rng.random_range(1..=4) {
+        world.input(&format!("i{i}"), rng.random());
+    }
+    let gates = rng.random_range(kind.gates.0..=kind.gates.1);
+    let mut nets: Vec<String> = world.inputs.iter().map(|(name, _)| name.clone()).collect();
+    nets.extend((0..gates).map(|g| format!("g{g}")));
+    for g in 0..gates {
+        let (function, pins) = function(rng, &nets);
+        let one = kind.delays.draw(rng);
+        let other = if rng.random_bool(0.5) { one } else { kind.delays.draw(rng) };
+        let delay = [exact(one), exact(other)];
+        world.gates.push(Gate {
+            name: nets[nets.len() - gates + g].clone(),
+            function,
+            pins,
+            delay,
+            filter: Filter::Inertial,
+        });
+    }
+    if kind.rings {
+        let (a, b) = (ring(&mut world, rng, "a", kind.delays), ring(&mut world, rng, "b", kind.delays));
+        if rng.random_bool(0.7) {
+            let delay = kind.delays.draw(rng);
+            world.gate("c", Function::Xor, &[&a, &b], delay);
+        }
+    }
+    for gate in &mut world.gates {
+        gate.filter = match kind.filters {
+            Filters::Inertial => Filter::Inertial,
+            Filters::Transport => Filter::Transport,
+            Filters::Mixed => *[Filter::Inertial, Filter::Transport].choose(rng).unwrap(),
+        };
+    }
+    for gate in world.gates.clone() {
+        let mut pins = gate.pins.clone();
+        pins.sort();
+        pins.dedup();
+        for pin in pins {
+            if rng.random_bool(kind.wires) {
+                let (rise, fall) = (kind.delays.draw(rng), kind.delays.draw(rng));
+                world.wire(&pin, &gate.name, rise, fall);
+            }
+        }
+    }
+    let clocks = if kind.clocks { rng.random_range(1..=2.min(world.inputs.len())) } else { 0 };
+    clock_and_steps(&mut world, rng, kind, clocks);
+    world.begin = match kind.begin {
+        Start::Rest => Begin::AtRest { named: Vec::new() },
+        Start::Random => Begin::Random,
+        Start::Unknown => Begin::Unknown,
+    };
+    world.limits.transitions = *kind.limits.choose(rng).unwrap();
+    if rng.random_bool(0.1) {
+        world.limits.time = Some(fs(rng.random_range(1..=20) * kind.delays.draw(rng)));
+    }
+    world.plan.seed = rng.random_range(0..1 << 40);
+    world
+}
+
+fn clock_and_steps(world: &mut World, rng: &mut ChaCha8Rng, kind: Kind, clocks: usize) {
+    let lengths = kind.delays;
+    let range = |rng: &mut ChaCha8Rng, least: u64| {
+        DelayRange::between(fs(least), fs(least + if rng.random() { lengths.draw(rng) } else { 0 }))
+    };
+    for c in 0..clocks {
+        let first = if rng.random() { 0 } else { lengths.draw(rng) };
+        let first = range(rng, first);
+        let jitter = rng.random_range(0..=2u64);
+        let high = 2 * jitter + lengths.draw(rng);
+        let high = range(rng, high);
+        let low = 2 * jitter + lengths.draw(rng);
+        let period = range(rng, high.max.fs() + low);
+        let count = rng.random_range(1..=12);
+        let clock =
+            Clock { net: world.net(&format!("i{c}")), first, period, high, jitter: fs(jitter), count, mark: Mark(0) };
+        world.clocks.push((format!("i{c}"), clock));
+    }
+    let free: Vec<String> = world.inputs[clocks..].iter().map(|(name, _)| name.clone()).collect();
+    let (mut by_time, mut earliest, mut skew_before) = (true, 0, 0);
+    for _ in 0..rng.random_range(kind.steps.0..=kind.steps.1) {
+        let wait = if rng.random_bool(0.3) { 0 } else { rng.random_range(0..=4) * lengths.draw(rng) };
+        let place = match rng.random_range(0..4) {
+            0 if by_time => Place::At(exact(earliest + wait)),
+            0 | 1 => Place::Rest(fs(wait)),
+            _ => Place::After(exact(skew_before + wait)),
+        };
+        by_time &= !matches!(place, Place::Rest(_));
+        earliest += skew_before + wait;
+        let mut inputs = free.clone();
+        inputs.retain(|_| rng.random_bool(0.7));
+        let set: Vec<(&str, bool)> = inputs.iter().map(|net| (net.as_str(), rng.random())).collect();
+        world.step(place, &set);
+        skew_before = 0;
+        if rng.random_bool(0.3) {
+            skew_before = lengths.draw(rng);
+            world.steps.last_mut().unwrap().skew = Some(DelayRange::between(fs(0), fs(skew_before)));
+        }
+        earliest += skew_before;
+        if rng.random_bool(0.02) {
+            let bounce = Bounce { lasting: exact(3), pulses: (1, 2) };
+            world.steps.last_mut().unwrap().bounce = Some(bounce);
+        } else if rng.random_bool(0.02) {
+            let pattern = vec![(NetId(0), true)];
+            world.steps.last_mut().unwrap().place = Place::When { pattern, wait: exact(1), timeout: None };
+        }
+    }
+}
+
+/// Small inertial circuits that begin at rest, full of ties.
+pub const PLAIN: Kind = Kind {
+    gates: (2, 9),
+    filters: Filters::Inertial,
+    begin: Start::Rest,
+    wires: 0.0,
+    delays: Lengths::Ties,
+    steps: (1, 6),
+    clocks: false,
+    limits: &[7, 40, 300, 2000],
+    rings: false,
+};
+
+/// One random case.
+pub struct Case {
+    /// Kind and number, for messages.
+    pub name: String,
+    pub world: World,
+    pub scenario: Scenario,
+    /// The values of all nets at rest; zeros where it does not begin at rest.
+    pub rest: Bits,
+    pub instance: Instance,
+}
+
+/// The first `count` random cases of a kind, but for those that should begin at rest and cannot.
+pub fn cases(count: u64, kind: Kind) -> impl Iterator<Item = Case> {
+    (0..count).filter_map(move |number| {
+        let mut rng = ChaCha8Rng::seed_from_u64(1);
+        rng.set_stream(number);
+        let world = world(&mut rng, kind);
+        let scenario = world.scenario();
+        let rest = match kind.begin {
+            Start::Rest => stable_states(&scenario.circuit, &scenario.stimulus.initial).choose(&mut rng)?.clone(),
+            _ => Bits::zeros(scenario.circuit.net_count()),
+        };
+        let instance = Instance::of(&scenario, &Which::Sample(rng.random_range(0..1000)));
+        Some(Case { name: format!("{kind:?} case {number}"), world, scenario, rest, instance })
+    })
+}

@@ -1,0 +1,418 @@
+//! A slow engine without tricks, for comparison: everything pending lies in one ordered set, every question is answered
+//! by looking through it, and the rules are written in the order in which the semantics states them.
+
+use std::collections::{BTreeMap, BTreeSet};
+
+use stillgate::circuit::{GateId, NetId};
+use stillgate::delay::Filter;
+use stillgate::engine::{End, Hit};
+use stillgate::instance::Instance;
+use stillgate::logic::{Bits, Value};
+use stillgate::scenario::{Begin, MomentKind, Place, Scenario};
+use stillgate::time::{Span, Time};
+
+use super::recorder::{Record, RecordedOpening, RecordedWindow, Swallow};
+use super::slow_recurrence::{Block, Recurred};
+
+/// Something that will happen at a node: gate number, or number of gates plus wire number.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub struct Event {
+    pub at: u64,
+    pub node: usize,
+    pub value: Value,
+    pub since: u64,
+}
+
+struct Open {
+    opening: RecordedOpening,
+    start: u64,
+    settle_from: u64,
+    last: Option<u64>,
+    at_rest: bool,
+    transitions: u64,
+}
+
+struct Slow<'a> {
+    scenario: &'a Scenario,
+    instance: &'a Instance,
+    now: u64,
+    nets: Vec<Value>,
+    ends: Vec<Value>,
+    pending: BTreeSet<Event>,
+    /// Input changes of steps with skew that are still to come, in the order in which they were placed.
+    coming: Vec<(u64, NetId, bool)>,
+    /// Clock edges still to come.
+    edges: BTreeSet<(u64, u32, NetId, bool)>,
+    next_step: usize,
+    /// The instant of the step before.
+    placed: u64,
+    blocks: Vec<Block>,
+    window: Option<Open>,
+    record: Record,
+}
+
+/// Runs one case. `rest` holds the values of all nets where the scenario begins at rest.
+pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Record {
+    let circuit = &scenario.circuit;
+    let nets: Vec<Value> = circuit
+        .nets()
+        .map(|net| match (circuit.driver(net), &scenario.begin) {
+            (_, Begin::AtRest { .. }) => Value::from(rest.expect("a state of rest").get(net.index())),
+            (None, _) => Value::from(scenario.stimulus.initial[net.index()]),
+            (Some(gate), Begin::Random) => Value::from(instance.start.get(gate.index())),
+            (Some(_), Begin::Unknown) => Value::X,
+        })
+        .collect();
+    let ends = circuit.wires().iter().map(|(net, _)| nets[net.index()]).collect();
+    let mut edges = BTreeSet::new();
+    for (moment, kind) in scenario.stimulus.moments.iter().map(|m| m.kind).enumerate() {
+        if let MomentKind::Edge { clock, edge } = kind {
+            let net = scenario.stimulus.clocks[clock as usize].net;
+            let initial = scenario.stimulus.initial[net.index()];
+            edges.insert((edge_instant(instance, clock, edge, initial), moment as u32, net, initial ^ (edge % 2 == 0)));
+        }
+    }
+    let blocks = (0..circuit.block_count() as u32).map(|block| Block::of(circuit, block)).collect();
+    let record = Record { start: nets.clone(), ..Record::default() };
+    let mut slow = Slow {
+        scenario,
+        instance,
+        now: 0,
+        nets,
+        ends,
+        pending: BTreeSet::new(),
+        coming: Vec::new(),
+        edges,
+        next_step: 0,
+        placed: 0,
+        blocks,
+        window: None,
+        record,
+    };
+    if !matches!(scenario.begin, Begin::AtRest { .. }) {
+        let opening = RecordedOpening { moments: vec![0], state: slow.nets.clone(), ..RecordedOpening::default() };
+        slow.window = Some(Open { opening, start: 0, settle_from: 0, last: None, at_rest: true, transitions: 0 });
+        for gate in circuit.gates() {
+            slow.evaluate(gate);
+        }
+    }
+    while slow.batch() {}
+    slow.record
+}
+
+/// Edge `edge` of a clock: first, first + high (or low), first + period, …, moved by its jitter, not before 0.
+fn edge_instant(instance: &Instance, clock: u32, edge: u32, initial: bool) -> u64 {
+    let case = &instance.clocks[clock as usize];
+    let mut at = case.first.fs() as i64 + i64::from(edge / 2) * case.period.fs() as i64;
+    if edge % 2 == 1 {
+        at += if initial { case.period.fs() - case.high.fs() } else { case.high.fs() } as i64;
+    }
+    (at + case.jitter.get(edge as usize).copied().unwrap_or(0)).max(0) as u64
+}
+
+impl Slow<'_> {
+    /// The instant of the next listed step, if that is known by now.
+    fn step_instant(&self) -> Option<u64> {
+        let step = self.scenario.stimulus.steps.get(self.next_step)?;
+        let wait = self.instance.places[self.next_step].fs();
+        match step.place {
+            _ if step.bounce.is_some() => None,
+            Place::At(_) => Some(wait),
+            Place::After(_) => Some(self.placed + wait),
+            Place::Rest(_) => (!self.busy() && self.edges.is_empty()).then_some(self.now + wait),
+            Place::When { .. } => None,
+        }
+    }
+
+    /// Is anything pending, input changes to come included?
+    fn busy(&self) -> bool {
+        !self.pending.is_empty() || !self.coming.is_empty()
+    }
+
+    /// Will a clock edge or a step come whose instant does not depend on rest?
+    fn timed_to_come(&self) -> bool {
+        let next = self.scenario.stimulus.steps.get(self.next_step);
+        !self.edges.is_empty()
+            || next.is_some_and(|step| step.bounce.is_none() && matches!(step.place, Place::At(_) | Place::After(_)))
+    }
+
+    /// Have all blocks with events pending recurred? Then the first of them.
+    fn oscillation(&self) -> Option<&Recurred> {
+        let at_work = || self.blocks.iter().filter(|block| self.pending.iter().any(|event| block.holds(event.node)));
+        if !self.coming.is_empty() || at_work().any(|block| block.recurred.is_none()) {
+            return None;
+        }
+        at_work().filter_map(|block| block.recurred.as_ref()).min_by_key(|found| found.at)
+    }
+
+    fn end_of(found: &Recurred) -> End {
+        let range = found.range.map(|(least, most)| (Span::from_fs(least), Span::from_fs(most)));
+        End::Oscillating { period: Span::from_fs(found.period), range }
+    }
+
+    /// The nets of what is pending.
+    fn pending_nets(&self) -> Vec<NetId> {
+        let circuit = &self.scenario.circuit;
+        let of = |event: &Event| match event.node.checked_sub(circuit.gate_count()) {
+            None => circuit.net_of(GateId(event.node as u32)),
+            Some(wire) => circuit.net_of(circuit.wires()[wire].1),
+        };
+        self.pending.iter().map(of).chain(self.coming.iter().map(|change| change.1)).collect()
+    }
+
+    fn close(&mut self, at: u64, end: End) {
+        self.record.end = at;
+        let Some(open) = self.window.take() else { return };
+        let moving = match end {
+            End::Oscillating { .. } => self.oscillation().map_or(Vec::new(), |found| found.moving.clone()),
+            _ => Vec::new(),
+        };
+        self.record.windows.push(RecordedWindow {
+            moment: open.opening.moments[0],
+            opening: open.opening,
+            start: open.start,
+            settle_from: open.settle_from,
+            stop: at,
+            began_at_rest: open.at_rest,
+            end,
+            settling: (end == End::Settled).then(|| open.last.unwrap_or(0).saturating_sub(open.settle_from)),
+            transitions: open.transitions,
+            state: self.nets.clone(),
+            pending: self.pending_nets(),
+            moving,
+        });
+    }
+
+    /// One batch: all that happens at the next instant. False at the end of the run.
+    fn batch(&mut self) -> bool {
+        let event = self.pending.first().map(|event| event.at);
+        let change = self.coming.iter().map(|change| change.0).min();
+        let edge = self.edges.first().map(|edge| edge.0);
+        let step = self.step_instant();
+        let Some(at) = [event, change, edge, step].into_iter().flatten().min() else {
+            self.close(self.now, End::Settled);
+            // it ends at rest before a step that is not analysed yet
+            self.record.stopped_before =
+                (self.next_step < self.scenario.stimulus.steps.len()).then(|| self.moment(self.next_step));
+            return false;
+        };
+        if let (Some(limit), Some(open)) = (self.scenario.limits.time, &self.window)
+            && self.busy()
+            && at > open.start + limit.fs()
+            && open.start + limit.fs() < Time::END.fs()
+        {
+            let end = open.start + limit.fs();
+            self.close(end, End::Unsettled(Hit::Time));
+            return false;
+        }
+        if at >= Time::END.fs() {
+            let end = if self.busy() { End::Unsettled(Hit::Longest) } else { End::Settled };
+            self.close(self.now, end);
+            return false;
+        }
+        if step == Some(at) || edge == Some(at) {
+            self.open_window(at);
+        }
+        self.now = at;
+
+        // apply everything of this instant
+        let mut set: Vec<(NetId, bool)> = Vec::new();
+        self.coming.retain(|change| {
+            let due = change.0 == at;
+            if due {
+                set.push((change.1, change.2));
+            }
+            !due
+        });
+        while self.edges.first().is_some_and(|edge| edge.0 == at) {
+            set.extend(self.edges.pop_first().map(|edge| (edge.2, edge.3)));
+        }
+        let before = (self.nets.clone(), self.ends.clone());
+        for (net, bit) in set {
+            self.nets[net.index()] = Value::from(bit);
+        }
+        let gates = self.scenario.circuit.gate_count();
+        while self.pending.first().is_some_and(|event| event.at == at) {
+            let event = self.pending.pop_first().expect("just seen");
+            if event.node < gates {
+                self.nets[self.scenario.circuit.net_of(GateId(event.node as u32)).index()] = event.value;
+            } else {
+                self.ends[event.node - gates] = event.value;
+            }
+        }
+        self.react(&before.0, &before.1);
+        if self.busy() {
+            if let (Some(end), false) = (self.oscillation().map(Slow::end_of), self.timed_to_come()) {
+                self.close(at, end);
+                return false;
+            }
+            if self.window.as_ref().is_some_and(|open| open.transitions >= self.scenario.limits.transitions) {
+                self.close(at, End::Unsettled(Hit::Transitions));
+                return false;
+            }
+        }
+        true
+    }
+
+    /// Ends the window before and begins one for the steps and clock edges of this instant.
+    fn open_window(&mut self, at: u64) {
+        let at_rest = !self.busy();
+        let end = if at_rest { End::Settled } else { self.oscillation().map_or(End::Cut, Slow::end_of) };
+        self.close(at, end);
+        let mut opening =
+            RecordedOpening { pending: self.pending_nets(), state: self.nets.clone(), ..RecordedOpening::default() };
+        let mut settle_from = at;
+        let mut last: BTreeMap<NetId, bool> = BTreeMap::new();
+        // a step by rest is a batch of its own; steps right after it, without a wait, belong to it
+        while self.step_instant() == Some(at) && (opening.moments.is_empty() || !self.by_rest()) {
+            opening.moments.push(self.moment(self.next_step));
+            let skews = self.instance.skews.get(self.next_step).filter(|skews| !skews.is_empty());
+            let least = skews.and_then(|skews| skews.iter().min()).map_or(0, |skew| skew.fs());
+            for (entry, (net, bit)) in self.scenario.stimulus.steps[self.next_step].set.iter().enumerate() {
+                let when = at + skews.map_or(0, |skews| skews[entry].fs()) - least;
+                settle_from = settle_from.max(when);
+                self.coming.push((when, *net, *bit));
+                last.insert(*net, *bit);
+            }
+            self.placed = at;
+            self.next_step += 1;
+        }
+        for (_, moment, net, bit) in self.edges.iter().filter(|edge| edge.0 == at) {
+            opening.moments.push(*moment);
+            last.insert(*net, *bit);
+        }
+        let changes = |(net, bit): &(NetId, bool)| self.nets[net.index()] != Value::from(*bit);
+        opening.inputs = last.into_iter().filter(changes).map(|(net, _)| net).collect();
+        self.window = Some(Open { opening, start: at, settle_from, last: None, at_rest, transitions: 0 });
+    }
+
+    fn moment(&self, step: usize) -> u32 {
+        let kind = MomentKind::Step(step as u32);
+        self.scenario.stimulus.moments.iter().position(|m| m.kind == kind).expect("a moment a step") as u32
+    }
+
+    fn by_rest(&self) -> bool {
+        matches!(self.scenario.stimulus.steps[self.next_step].place, Place::Rest(_))
+    }
+
+    /// Tells what changed, lets wires and gates react to it, and looks for recurrence.
+    fn react(&mut self, nets: &[Value], ends: &[Value]) {
+        let (circuit, at) = (self.scenario.circuit.clone(), self.now);
+        let open = self.window.as_mut().expect("nothing moves before the first window");
+        let changed: Vec<NetId> = circuit.nets().filter(|net| self.nets[net.index()] != nets[net.index()]).collect();
+        let arrived: Vec<usize> = (0..ends.len()).filter(|w| self.ends[*w] != ends[*w]).collect();
+        for net in &changed {
+            self.record.changes.push((at, *net, self.nets[net.index()]));
+            open.transitions += 1;
+            if !circuit.is_input(*net) {
+                open.last = Some(at);
+            }
+        }
+        if !arrived.is_empty() {
+            open.last = Some(at);
+        }
+        self.record.events += (changed.len() + arrived.len()) as u64;
+
+        let wires = circuit.wires();
+        for (w, (net, _)) in wires.iter().enumerate() {
+            if changed.contains(net) {
+                let (node, delay) = (circuit.gate_count() + w, self.instance.delays.wire[w]);
+                self.schedule_all(node, self.ends[w], self.nets[net.index()], delay);
+            }
+        }
+        for gate in circuit.gates() {
+            let near = |net: &NetId| changed.contains(net) && !wires.contains(&(*net, gate));
+            if circuit.pins(gate).iter().any(near) || arrived.iter().any(|w| wires[*w].1 == gate) {
+                self.evaluate(gate);
+            }
+        }
+
+        let mut blocks = std::mem::take(&mut self.blocks);
+        for block in &mut blocks {
+            block.after_batch(at, &changed, &arrived, &self.nets, &self.ends, &self.pending);
+        }
+        self.blocks = blocks;
+    }
+
+    /// The function of a gate of its present inputs: known if every completion of the X's gives the same.
+    fn function(&self, gate: GateId) -> Value {
+        let circuit = &self.scenario.circuit;
+        let pins = circuit.pins(gate);
+        let seen = |net: &NetId| match circuit.wires().iter().position(|wire| *wire == (*net, gate)) {
+            Some(wire) => self.ends[wire],
+            None => self.nets[net.index()],
+        };
+        let unknown: BTreeSet<NetId> = pins.iter().copied().filter(|net| seen(net) == Value::X).collect();
+        let outcomes: BTreeSet<bool> = (0..1u32 << unknown.len())
+            .map(|completion| {
+                let bit = |net: &NetId| match unknown.iter().position(|other| other == net) {
+                    Some(at) => completion >> at & 1 == 1,
+                    None => seen(net) == Value::One,
+                };
+                circuit.function(gate).value(&pins.iter().map(bit).collect::<Vec<bool>>())
+            })
+            .collect();
+        if outcomes.len() == 1 { Value::from(outcomes.contains(&true)) } else { Value::X }
+    }
+
+    fn evaluate(&mut self, gate: GateId) {
+        let f = self.function(gate);
+        let v = self.nets[self.scenario.circuit.net_of(gate).index()];
+        let (node, delay) = (gate.index(), self.instance.delays.gate[gate.index()]);
+        match self.scenario.delays.filter[gate.index()] {
+            Filter::Inertial => {
+                let pending = self.pending.iter().find(|event| event.node == node).copied();
+                if pending.is_some_and(|event| event.value == f) {
+                    return;
+                }
+                if let Some(event) = pending {
+                    self.cancel(event);
+                }
+                if f != v {
+                    self.pending.insert(Event { at: self.now + span(delay, f), node, value: f, since: self.now });
+                }
+            }
+            Filter::Transport => self.schedule_all(node, v, f, delay),
+            filter => panic!("{filter:?} is not part of this engine"),
+        }
+    }
+
+    /// Transport: removes what is scheduled for the new time or later; what would change nothing is no event.
+    fn schedule_all(&mut self, node: usize, present: Value, new: Value, delay: [Span; 2]) {
+        let last = |pending: &BTreeSet<Event>| pending.iter().rfind(|event| event.node == node).copied();
+        if last(&self.pending).map_or(present, |event| event.value) == new {
+            return;
+        }
+        let at = self.now + span(delay, new);
+        while let Some(event) = last(&self.pending).filter(|event| event.at >= at) {
+            self.cancel(event);
+        }
+        if last(&self.pending).map_or(present, |event| event.value) != new {
+            self.pending.insert(Event { at, node, value: new, since: self.now });
+        }
+    }
+
+    fn cancel(&mut self, event: Event) {
+        self.pending.remove(&event);
+        let age = self.now - event.since;
+        if event.node < self.scenario.circuit.gate_count() && age > 0 {
+            let window = self.record.windows.len();
+            self.record.swallowed.push(Swallow {
+                window,
+                at: self.now,
+                gate: event.node,
+                age,
+                delay: event.at - event.since,
+            });
+        }
+    }
+}
+
+/// To 1 takes rise, to 0 takes fall, to X the shorter of both.
+fn span(delay: [Span; 2], new: Value) -> u64 {
+    match new {
+        Value::Zero => delay[0].fs(),
+        Value::One => delay[1].fs(),
+        Value::X => delay[0].min(delay[1]).fs(),
+    }
+}
