@@ -120,6 +120,14 @@ pub(super) fn percent(share: f64) -> String {
     }
 }
 
+/// A part of a whole with three significant digits; what is less than the whole never reads 1.
+pub(super) fn part(share: f64) -> String {
+    match three(share).as_str() {
+        "1" if share < 1.0 => "above 0.999".to_string(),
+        digits => digits.to_string(),
+    }
+}
+
 /// A count with digits in groups of three: `10,000`.
 pub(super) fn count(number: u64) -> String {
     let digits = number.to_string();

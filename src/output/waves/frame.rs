@@ -30,6 +30,8 @@ pub(super) const SWING: f64 = 16.0;
 pub(super) const LINE: f64 = 15.0;
 /// Rows of labels below one lane, and below the axis.
 const LABEL_ROWS: usize = 3;
+/// Marks without a label that are closer than this to the one before are not drawn.
+const CLOSE: f64 = 1.5;
 /// Most steps that the key lists.
 const KEY: usize = 60;
 /// Most names that a note lists.
@@ -115,7 +117,7 @@ impl Frame {
         let range = (range.0, range.1.max(range.0 + Span::TICK));
         let shown = |at: Time| range.0 <= at && at <= range.1;
 
-        let names = nets.iter().map(|net| width(words::net(scenario, *net), BODY)).fold(88.0, f64::max);
+        let names = nets.iter().map(|net| width(words::net(scenario, *net), BODY)).fold(94.0, f64::max);
         let left = MARGIN + names.min(NAMES) + 8.0;
         let right = WIDTH - MARGIN - VALUES;
         let steps: Vec<Step> = front.map_or_else(Vec::new, |run| marks::steps(scenario, run));
@@ -128,7 +130,7 @@ impl Frame {
         let axis = Axis::new(range, &busy, left, right - TAIL, scenario.unit);
 
         let at: Vec<(f64, &Step)> = steps.iter().map(|step| (axis.x(step.at), step)).collect();
-        let flags = flags::place(&at, WIDTH - MARGIN);
+        let flags = flags::place(&at, (MARGIN, WIDTH - MARGIN));
         let row = if flags.two_lines { 2.0 * LINE - 2.0 } else { LINE };
         let lanes_top = 34.0 + flags.rows as f64 * row + 8.0;
 
@@ -183,7 +185,7 @@ impl Frame {
         }
         let axis_y = y + 12.0;
         let shown_endings: Vec<&Ending> = endings.iter().filter(|ending| shown(ending.at)).collect();
-        let (rests, rows) = rests(&shown_endings, &axis, axis_y, &mut missing);
+        let (rests, rows) = rests(&shown_endings, &axis, left, axis_y, &mut missing);
         let mut y = axis_y + 20.0 + rows as f64 * LINE;
 
         let edges: usize = lanes.iter().flat_map(|lane| &lane.waves).map(|wave| wave.edges.len()).sum();
@@ -276,6 +278,9 @@ fn brackets(spots: &[&Spot], axis: &Axis, left: f64, y: f64, missing: &mut bool)
         let start = (f64::midpoint(from, to) - wide / 2.0).clamp(left, WIDTH - MARGIN - wide);
         let row = rows.place(start, start + wide + 10.0);
         *missing |= row.is_none();
+        if row.is_none() && all.last().is_some_and(|last: &Bracket| to + grow - last.right < CLOSE) {
+            continue;
+        }
         all.push(Bracket {
             left: from - grow,
             right: to + grow,
@@ -289,15 +294,18 @@ fn brackets(spots: &[&Spot], axis: &Axis, left: f64, y: f64, missing: &mut bool)
 }
 
 /// Places the ends of windows below the axis. Gives back the rows.
-fn rests(endings: &[&Ending], axis: &Axis, axis_y: f64, missing: &mut bool) -> (Vec<Rest>, usize) {
+fn rests(endings: &[&Ending], axis: &Axis, left: f64, axis_y: f64, missing: &mut bool) -> (Vec<Rest>, usize) {
     let mut rows = Rows::new(LABEL_ROWS);
     let mut all = Vec::with_capacity(endings.len());
     for ending in endings {
         let x = axis.x(ending.at);
         let half = width(&ending.label, SMALL) / 2.0;
-        let middle = x.min(WIDTH - MARGIN - half).max(MARGIN + half);
+        let middle = x.min(WIDTH - MARGIN - half).max(left - 8.0 + half);
         let row = rows.place(middle - half - 4.0, middle + half + 4.0);
         *missing |= row.is_none();
+        if row.is_none() && all.last().is_some_and(|last: &Rest| x - last.x < CLOSE) {
+            continue;
+        }
         all.push(Rest {
             x,
             is_rest: ending.is_rest,
