@@ -101,7 +101,8 @@ fn scenario(name: &str) -> Scenario {
     }
 }
 
-const CIRCUITS: [&str; 4] = ["latch of 2, 400 steps", "divider of 6, 200 edges", "ripple of 48, 200 edges", "grid of 100,000"];
+const CIRCUITS: [&str; 4] =
+    ["latch of 2, 400 steps", "divider of 6, 200 edges", "ripple of 48, 200 edges", "grid of 100,000"];
 
 /// Counts changes and nothing else.
 #[derive(Default)]

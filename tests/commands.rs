@@ -8,7 +8,11 @@ use serde_json::Value;
 
 /// Runs the program in a folder of its own, so that nothing is left behind elsewhere.
 fn stillgate(folder: &Path, arguments: &[&str]) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_stillgate")).current_dir(folder).args(arguments).output().expect("the program starts")
+    Command::new(env!("CARGO_BIN_EXE_stillgate"))
+        .current_dir(folder)
+        .args(arguments)
+        .output()
+        .expect("the program starts")
 }
 
 fn project(path: &str) -> String {

@@ -38,7 +38,7 @@ fn each_malformed_file_gets_its_one_fault() {
         let text = fs::read_to_string(&path).expect("a text");
         let (line, column, fragment) = expected(&text).unwrap_or_else(|| panic!("{path:?} says what to expect"));
         match reader::load(&path) {
-            Err(ReadError::Text(found)) => {
+            Err(ReadError::Faults(found)) => {
                 let item = &found.items()[0];
                 let right = found.items().len() == 1
                     && (item.line, item.column) == (line, column)

@@ -4,7 +4,7 @@ use std::process::ExitCode;
 
 use super::args::Sweeping;
 use super::common::{
-    Failure, INTERRUPTED, called, code, control, finish, folder, load, program, page, say, with_draws, write,
+    Failure, INTERRUPTED, called, code, control, finish, folder, load, page, program, say, with_draws, write,
 };
 use crate::findings::Asked;
 use crate::output::{bundle, json, text};

@@ -1,5 +1,7 @@
 //! Everything that a scenario asks, as numbered questions: one for each rule pattern or net, and step.
 
+use rustc_hash::FxHashMap;
+
 use crate::circuit::{Circuit, NetId, NetSet};
 use crate::scenario::{
     Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Scenario, Stimulus, Swallowed,
@@ -117,7 +119,12 @@ pub struct Question {
 pub struct Asked {
     /// The questions, by number.
     pub questions: Vec<Question>,
+    /// The number of each question by what is asked.
+    numbers: FxHashMap<Key, u32>,
 }
+
+/// What tells questions apart: rule, which of several, net, moment.
+type Key = (RuleKey, u32, Option<NetId>, Option<u32>);
 
 /// The moments that can touch a cone.
 pub(super) fn touching<'a>(stimulus: &'a Stimulus, cone: &'a NetSet) -> impl Iterator<Item = u32> + 'a {
@@ -258,12 +265,13 @@ impl Asked {
                 }
             }
         }
-        Asked { questions }
+        let key = |q: &Question| (q.rule, q.index, q.net, q.moment);
+        let numbers = questions.iter().enumerate().map(|(i, q)| (key(q), i as u32)).collect();
+        Asked { questions, numbers }
     }
 
     /// The number of the question with these marks.
     pub fn find(&self, rule: RuleKey, index: u32, net: Option<NetId>, moment: Option<u32>) -> Option<u32> {
-        let mut all = self.questions.iter();
-        all.position(|q| (q.rule, q.index, q.net, q.moment) == (rule, index, net, moment)).map(|i| i as u32)
+        self.numbers.get(&(rule, index, net, moment)).copied()
     }
 }

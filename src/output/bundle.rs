@@ -60,7 +60,7 @@ pub enum WriteError {
 }
 
 impl Bundle {
-    /// Adds a text under a file name.
+    /// Adds a file of text.
     pub fn add(&mut self, name: &str, text: String) {
         self.files.push(File { name: name.to_string(), bytes: text.into_bytes() });
     }

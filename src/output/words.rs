@@ -3,6 +3,7 @@
 use crate::circuit::NetId;
 use crate::findings::{Asked, Fact, Kind, Subject};
 use crate::instance::Which;
+pub(super) use crate::review::grouped as count;
 use crate::scenario::{MomentKind, Scenario};
 use crate::sweep::{Tie, Worst};
 use crate::time::Span;
@@ -118,27 +119,6 @@ pub(super) fn percent(share: f64) -> String {
         "100" if share < 1.0 => "above 99.9 %".to_string(),
         digits => format!("{digits} %"),
     }
-}
-
-/// A part of a whole with three significant digits; what is less than the whole never reads 1.
-pub(super) fn part(share: f64) -> String {
-    match three(share).as_str() {
-        "1" if share < 1.0 => "above 0.999".to_string(),
-        digits => digits.to_string(),
-    }
-}
-
-/// A count with digits in groups of three: `10,000`.
-pub(super) fn count(number: u64) -> String {
-    let digits = number.to_string();
-    let mut text = String::new();
-    for (i, digit) in digits.chars().enumerate() {
-        if i > 0 && (digits.len() - i).is_multiple_of(3) {
-            text.push(',');
-        }
-        text.push(digit);
-    }
-    text
 }
 
 /// `1 step`, `3 steps`: a count with its noun.

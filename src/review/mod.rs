@@ -13,7 +13,7 @@ pub use verdict::{grouped, verdict};
 
 use crate::circuit::NetId;
 use crate::control::Control;
-use crate::engine::{End, Program};
+use crate::engine::Program;
 use crate::findings::{Asked, Kind};
 use crate::instance::Which;
 use crate::scenario::Scenario;
@@ -109,9 +109,4 @@ fn to_show(sweep: &SweepReport) -> Vec<usize> {
     first.truncate(SHOWN);
     first.sort_unstable();
     first
-}
-
-/// Did the last window of a run oscillate or hit a limit, so that later steps never came?
-pub fn ended_early(run: &RunReport) -> Option<End> {
-    run.trace.windows.last().map(|window| window.end).filter(|end| !matches!(end, End::Settled | End::Cut))
 }

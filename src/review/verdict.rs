@@ -62,7 +62,7 @@ pub fn grouped(n: u64) -> String {
     let digits = n.to_string();
     let mut text = String::new();
     for (i, digit) in digits.chars().enumerate() {
-        if i > 0 && (digits.len() - i) % 3 == 0 {
+        if i > 0 && (digits.len() - i).is_multiple_of(3) {
             text.push(',');
         }
         text.push(digit);
@@ -148,7 +148,8 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
         }
     }
     for (judged, not_judged, written, what) in groups.values() {
-        if !not_judged.is_empty() && !(scenario.rules.accept_not_judged && *judged > 0) {
+        let accepted = scenario.rules.accept_not_judged && *judged > 0;
+        if !not_judged.is_empty() && !accepted {
             let each: Vec<String> = not_judged
                 .iter()
                 .map(|(reason, count)| format!("{} in up to {} draws", reason.words(), grouped(*count)))

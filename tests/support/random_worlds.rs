@@ -65,10 +65,10 @@ fn function(rng: &mut ChaCha8Rng, nets: &[String]) -> (Function, Vec<String>) {
     let wide = rng.random_bool(0.15);
     if choice >= 10 {
         // an expression over some of the nets, some of them twice
-        let most = if wide { 10 } else { 4 };
-        let nets: Vec<&String> = (0..rng.random_range(1..=most)).map(|_| nets.choose(rng).unwrap()).collect();
+        let (nets_in_use, terms) = if wide { (9..=14, 10..=20) } else { (1..=4, 1..=6) };
+        let nets: Vec<&String> = (0..rng.random_range(nets_in_use)).map(|_| nets.choose(rng).unwrap()).collect();
         let mut text = String::new();
-        for i in 0..rng.random_range(1..=most + 2) {
+        for i in 0..rng.random_range(terms) {
             if i > 0 {
                 text.push_str([" & ", " | ", " ^ "].choose(rng).unwrap());
             }

@@ -96,15 +96,8 @@ impl<S: Sink> Judge<S> {
         let (circuit, rules, stimulus) = (&*scenario.circuit, &*scenario.rules, &*scenario.stimulus);
         let moments = stimulus.moments.len();
         let by_rule = |rule: RuleKey, index: u32, net: Option<NetId>| {
-            let mut all = vec![NONE; moments];
-            for (q, question) in asked.questions.iter().enumerate() {
-                if (question.rule, question.index, question.net) == (rule, index, net)
-                    && let Some(moment) = question.moment
-                {
-                    all[moment as usize] = q as u32;
-                }
-            }
-            all
+            let each = (0..moments as u32).map(|moment| asked.find(rule, index, net, Some(moment)).unwrap_or(NONE));
+            each.collect::<Vec<u32>>()
         };
         let single = |rule: RuleKey, index: u32, net: Option<NetId>| asked.find(rule, index, net, None).unwrap_or(NONE);
 

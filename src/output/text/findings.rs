@@ -37,12 +37,13 @@ pub(super) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> St
 /// The worst value in words, by what it measures.
 pub(super) fn worst(kind: Kind, worst: Worst) -> String {
     match (kind, worst) {
-        (Kind::Glitch | Kind::MinPulse, Worst::Time(width)) => format!("narrowest {}", width.rounded()),
+        (Kind::Glitch, Worst::Time(width)) => format!("pulses up to {} wide", width.rounded()),
+        (Kind::MinPulse, Worst::Time(width)) => format!("narrowest {}", width.rounded()),
         (Kind::SettleWithin, Worst::Time(time)) => format!("latest {}", time.rounded()),
         (Kind::Never, Worst::Time(time)) => format!("longest {}", time.rounded()),
         (Kind::Oscillation, Worst::Time(period)) => format!("longest period {}", period.rounded()),
         (_, Worst::Time(time)) => format!("worst {}", time.rounded()),
-        (_, Worst::Share(share)) => format!("longest pulse {} of the delay", words::part(share)),
+        (_, Worst::Share(share)) => format!("at worst {} of the delay", words::percent(share)),
     }
 }
 

@@ -34,7 +34,7 @@ pub(super) fn verdict(paper: &mut Paper, verdict: &Verdict) {
         Call::Proved | Call::NoFailureFound => Tone::Strong,
     };
     paper.say(0, tone, &format!("{capital}{}", letters.as_str()));
-    // a single reason is what the sentence says
+    // a single reason is in the sentence already
     if verdict.reasons.len() > 1 {
         for reason in verdict.reasons.iter().take(REASONS) {
             paper.item(Tone::Plain, reason);

@@ -1,16 +1,16 @@
 //! The sweep alone.
 
 use super::Page;
-use super::review::{body, verdict as judged};
+use super::review::{body, verdict as say_verdict};
 use crate::findings::Asked;
 use crate::review::Verdict;
 use crate::scenario::Scenario;
 use crate::sweep::SweepReport;
 
-/// The text of `sweep`: as that of a review, with the verdict of the sweep alone.
+/// The text of `sweep`: the same as that of a review, from the sweep alone.
 pub fn sweep(scenario: &Scenario, asked: &Asked, report: &SweepReport, verdict: &Verdict, page: &Page<'_>) -> String {
     let mut paper = page.paper();
-    judged(&mut paper, verdict);
+    say_verdict(&mut paper, verdict);
     body(&mut paper, page, scenario, asked, report);
     paper.finish()
 }

@@ -99,7 +99,8 @@ fn in_full(steps: &[(f64, &Step)], named: &[usize], ends: (f64, f64)) -> Option<
     for (k, &(x, from, to, _)) in boxes.iter().enumerate() {
         for (l, &(line, start, end, leftwards)) in boxes.iter().enumerate() {
             let passes = from - GAP < line && line < to + GAP && (line != x || k < l);
-            let hidden = leftwards && k < l && from < end + GAP && start < to + GAP;
+            let below = start - GAP < x && x < end + GAP;
+            let hidden = leftwards && k < l && !below && from < end + GAP && start < to + GAP;
             if k != l && (passes || hidden) {
                 above.push((k, l));
             }

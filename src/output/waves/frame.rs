@@ -28,6 +28,8 @@ const PITCH: f64 = 27.0;
 pub(super) const SWING: f64 = 16.0;
 /// One line of small text.
 pub(super) const LINE: f64 = 15.0;
+/// A bracket and its label.
+const BRACKET: f64 = 18.0;
 /// Rows of labels below one lane, and below the axis.
 const LABEL_ROWS: usize = 3;
 /// Marks without a label that are closer than this to the one before are not drawn.
@@ -169,7 +171,7 @@ impl Frame {
             let (top, bottom) = (y + 5.0, y + 5.0 + SWING);
             let own: Vec<&Spot> = spots.iter().filter(|spot| spot.net == Some(*net)).collect();
             let (brackets, rows) = brackets(&own, &axis, left, bottom + 4.0, &mut missing);
-            y += PITCH + if rows > 0 { rows as f64 * LINE - 2.0 } else { 0.0 };
+            y += PITCH + rows as f64 * BRACKET - if rows > 0 { 3.0 } else { 0.0 };
             let name = cut_middle(&full_name, BODY, left - 8.0 - MARGIN).unwrap_or_else(|| full_name.clone());
             lanes.push(Lane { net: *net, name, full_name, top, bottom, waves, value, is_open, brackets });
         }
@@ -181,7 +183,7 @@ impl Frame {
         let (whole, rows) = brackets(&others, &axis, left, y + 5.0, &mut missing);
         let whole_caption = (!others.is_empty()).then_some(y + 18.0);
         if !others.is_empty() {
-            y += 10.0 + rows.max(1) as f64 * LINE;
+            y += 6.0 + rows.max(1) as f64 * BRACKET;
         }
         let axis_y = y + 12.0;
         let shown_endings: Vec<&Ending> = endings.iter().filter(|ending| shown(ending.at)).collect();
@@ -276,19 +278,15 @@ fn brackets(spots: &[&Spot], axis: &Axis, left: f64, y: f64, missing: &mut bool)
         let text = cut_end(&spot.label, SMALL, room).unwrap_or_else(|| spot.label.clone());
         let wide = width(&text, SMALL);
         let start = (f64::midpoint(from, to) - wide / 2.0).clamp(left, WIDTH - MARGIN - wide);
-        let row = rows.place(start, start + wide + 10.0);
+        let (left, right) = (from - grow, to + grow);
+        let row = rows.place(start.min(left), (start + wide).max(right) + 10.0);
         *missing |= row.is_none();
-        if row.is_none() && all.last().is_some_and(|last: &Bracket| to + grow - last.right < CLOSE) {
+        if row.is_none() && all.last().is_some_and(|last: &Bracket| right - last.right < CLOSE) {
             continue;
         }
-        all.push(Bracket {
-            left: from - grow,
-            right: to + grow,
-            y,
-            label: row.map(|row| (text, start, y + 14.0 + row as f64 * LINE)),
-            title: spot.title.clone(),
-            breaks_rule: spot.breaks_rule,
-        });
+        let y = y + row.unwrap_or(0) as f64 * BRACKET;
+        let label = row.map(|_| (text, start, y + 14.0));
+        all.push(Bracket { left, right, y, label, title: spot.title.clone(), breaks_rule: spot.breaks_rule });
     }
     (all, rows.len())
 }
