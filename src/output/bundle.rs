@@ -15,7 +15,7 @@ use crate::time::Time;
 
 /// Most findings that get a picture of their failing case.
 pub const MOST_PICTURES: usize = 12;
-/// Runs of more windows than this are shown from the window before the finding to its end.
+/// Of runs with more windows than this only what is around the finding is shown.
 const WHOLE_RUN: usize = 8;
 /// Longest part of a file name.
 const PART: usize = 40;
@@ -144,9 +144,14 @@ fn around(subject: &Subject, run: &RunReport) -> Option<(Time, Time)> {
     if windows.len() <= WHOLE_RUN {
         return None;
     }
-    let moment = subject.moment?;
-    let at = windows.iter().position(|window| window.moment == moment)?;
-    Some((windows[at.saturating_sub(1)].start, windows[at].stop))
+    let window = windows.iter().find(|window| Some(window.moment) == subject.moment)?;
+    let place = run.facts.iter().find(|fact| fact.subject == *subject).and_then(|fact| fact.place);
+    let (from, to) = place.unwrap_or((window.start, window.stop));
+    let (from, to) = (from.min(window.start), to.max(window.stop));
+    // something of before and after, so that edges at both ends can be seen
+    let length = to.since(from).fs();
+    let before = Time::from_fs(from.fs().saturating_sub(length / 3));
+    Some((before, Time::from_fs(to.fs() + length / 12).min(run.trace.end.max(to))))
 }
 
 /// `waves-<kind>-<net or pattern>-<step>`, of letters, digits and dashes.

@@ -2,7 +2,7 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use crate::findings::{Asked, Kind, Subject};
+use crate::findings::{Asked, Kind, RuleKey, Subject};
 use crate::output::words;
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, SweepReport, Tie, Worst};
@@ -41,6 +41,7 @@ pub(super) fn worst(kind: Kind, worst: Worst) -> String {
         (Kind::MinPulse, Worst::Time(width)) => format!("narrowest {}", width.rounded()),
         (Kind::SettleWithin, Worst::Time(time)) => format!("latest {}", time.rounded()),
         (Kind::Never, Worst::Time(time)) => format!("longest {}", time.rounded()),
+        (Kind::Oscillation, Worst::Time(period)) => format!("longest period {}", period.rounded()),
         (_, Worst::Time(time)) => format!("worst {}", time.rounded()),
         (_, Worst::Share(share)) => format!("at worst {} of the delay", words::percent(share)),
     }
@@ -72,14 +73,50 @@ fn figures(finding: &Finding) -> String {
     text
 }
 
+/// Findings of one kind, rule and net after several steps: the worst, and how many more.
+struct Group<'a> {
+    worst: &'a Finding,
+    more_steps: usize,
+}
+
+/// Groups in the order of their worst findings.
+fn groups<'a>(asked: &Asked, findings: impl Iterator<Item = &'a Finding>) -> Vec<Group<'a>> {
+    let rule = |subject: &Subject| {
+        let question = subject.question.and_then(|number| asked.questions.get(number as usize));
+        // what a step expects is its own; other rules are one rule for all steps
+        let own = question.filter(|it| matches!(it.rule, RuleKey::Expect | RuleKey::Edges)).and(subject.moment);
+        (question.map(|it| (it.rule, it.index)), own)
+    };
+    let mut groups: Vec<Group<'a>> = Vec::new();
+    for finding in findings {
+        let key = |it: &Finding| (it.subject.kind, it.subject.shape, it.subject.net, rule(&it.subject));
+        match groups.iter_mut().find(|group| key(group.worst) == key(finding)) {
+            Some(group) => group.more_steps += 1,
+            None => groups.push(Group { worst: finding, more_steps: 0 }),
+        }
+    }
+    groups
+}
+
+impl Group<'_> {
+    fn about(&self, scenario: &Scenario, asked: &Asked) -> String {
+        let also = match self.more_steps {
+            0 => String::new(),
+            n => format!(" (and {})", words::many(n as u64, "more step")),
+        };
+        about(scenario, asked, &self.worst.subject) + &also
+    }
+}
+
 /// Findings that break a rule in full, then those that break none.
 pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, asked: &Asked, report: &SweepReport) {
-    let (broken, listed): (Vec<&Finding>, Vec<&Finding>) = report.findings.iter().partition(|it| it.breaks_rule);
+    let of = |broken: bool| groups(asked, report.findings.iter().filter(|it| it.breaks_rule == broken));
+    let (broken, listed) = (of(true), of(false));
     if !broken.is_empty() {
         paper.heading("Findings that break a rule, worst first");
-        for (i, finding) in broken.iter().take(FULL).enumerate() {
-            let text = format!("{} {}", i + 1, about(scenario, asked, &finding.subject));
-            paper.hang(2, 4, Tone::Bad, &text);
+        for (i, group) in broken.iter().take(FULL).enumerate() {
+            let finding = group.worst;
+            paper.hang(2, 4, Tone::Bad, &format!("{} {}", i + 1, group.about(scenario, asked)));
             paper.say(4, Tone::Plain, &figures(finding));
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
                 paper.whole(4, &page.replay(sample));
@@ -89,9 +126,8 @@ pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, 
     }
     if !listed.is_empty() {
         paper.heading("Also seen, breaks no rule");
-        for finding in listed.iter().take(LISTED) {
-            let text = format!("{}: {}", about(scenario, asked, &finding.subject), figures(finding));
-            paper.item(Tone::Plain, &text);
+        for group in listed.iter().take(LISTED) {
+            paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), figures(group.worst)));
         }
         super::more(paper, listed.len().saturating_sub(LISTED), "findings.csv");
     }

@@ -39,8 +39,8 @@ pub(super) fn verdict(paper: &mut Paper, verdict: &Verdict) {
         for reason in verdict.reasons.iter().take(REASONS) {
             paper.item(Tone::Plain, reason);
         }
+        super::more(paper, verdict.reasons.len().saturating_sub(REASONS), "the JSON, with --json");
     }
-    super::more(paper, verdict.reasons.len().saturating_sub(REASONS), "result.json");
 }
 
 /// Everything about a sweep below its first sentence.
@@ -51,7 +51,7 @@ pub(super) fn body(
     asked: &crate::findings::Asked,
     report: &SweepReport,
 ) {
-    paper.heading(&format!("{}: steps, outcomes, settling times ({})", scenario.title, draws(report)));
+    paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
     if report.samples < report.plan.samples {
         let (done, wanted) = (words::count(report.samples), words::count(report.plan.samples));
         paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run."));

@@ -93,7 +93,7 @@ pub(super) fn margins(paper: &mut Paper, scenario: &Scenario, report: &SweepRepo
         return;
     }
     paper.heading(&format!("Smallest margins without a failure, in {}", words::many(report.samples, "draw")));
-    let mut table = Table::new().number("margin", 0).number("of", 0).text("rule").text("step").number("sample", 1);
+    let mut table = Table::new().number("margin", 0).number("bound", 0).text("rule").text("step").number("sample", 1);
     for (rule, margin, bound) in least.iter().take(MOST) {
         table.row(
             Tone::Plain,

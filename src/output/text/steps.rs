@@ -53,32 +53,41 @@ pub(super) fn steps(paper: &mut Paper, scenario: &Scenario, report: &SweepReport
         .number("median", 2)
         .number("99th perc.", 3)
         .number("longest", 1);
-    let mut left = 0;
-    let mut rows = 0;
-    for window in &report.windows {
-        let lines = lines(scenario, window);
-        if rows > 0 && rows + lines.len() > ROWS {
-            left += 1;
-            continue;
-        }
-        rows += lines.len();
-        for (i, (tone, draws, words)) in lines.into_iter().enumerate() {
+    let all: Vec<(&WindowReport, Vec<(Tone, u64, String)>)> =
+        report.windows.iter().map(|window| (window, lines(scenario, window))).collect();
+    let shown = chosen(&all);
+    for (window, lines) in all.iter().zip(&shown).filter(|it| *it.1).map(|it| it.0) {
+        for (i, (tone, draws, words)) in lines.iter().enumerate() {
             let first = i == 0;
             let label = if first { words::step(scenario, Some(window.moment)).unwrap_or_default() } else { "" };
             let settling = window.settling.as_ref().filter(|_| first);
             let [median, p99, longest] = settling.map_or_else(Default::default, times);
-            table.row(tone, vec![label.to_string(), words::count(draws), words, median, p99, longest]);
+            table.row(*tone, vec![label.to_string(), words::count(*draws), words.clone(), median, p99, longest]);
         }
     }
-    if rows == 0 {
+    if all.is_empty() {
         paper.say(2, Tone::Plain, "There is no step.");
         return;
     }
     paper.table(&table);
-    if left > 0 {
-        let steps = words::many(left, "step");
-        paper.say(2, Tone::Plain, &format!("... and {steps} more (see outcomes.csv and settling.csv)"));
+    let left = shown.iter().filter(|shown| !**shown).count();
+    super::more(paper, left, "outcomes.csv and settling.csv");
+}
+
+/// Which windows are shown: where a rule is broken first, then in order, until the rows are used up.
+fn chosen(all: &[(&WindowReport, Vec<(Tone, u64, String)>)]) -> Vec<bool> {
+    let mut shown = vec![false; all.len()];
+    let mut rows = 0;
+    for wanted in [true, false] {
+        for (shown, (window, lines)) in shown.iter_mut().zip(all) {
+            let broken = window.unsettled > 0 || window.outcomes.iter().any(|outcome| outcome.breaks_rule);
+            if broken == wanted && (rows == 0 || rows + lines.len() <= ROWS) {
+                rows += lines.len();
+                *shown = true;
+            }
+        }
     }
+    shown
 }
 
 /// What became of a step's windows: how often, and what.

@@ -76,7 +76,7 @@ fn grid(frame: &Frame) -> Markup {
 fn steps(picture: &Picture<'_>, frame: &Frame) -> Markup {
     html! {
         g stroke=(INK) fill="none" {
-            @for (flag, step) in frame.flags.flags.iter().zip(&frame.steps) {
+            @for (flag, step) in frame.flags.flags.iter().zip(&frame.steps).filter(|(flag, _)| flag.is_drawn) {
                 @let top = if flag.label.is_empty() { frame.lanes_top } else { flag_base(frame, flag.row) - 9.0 };
                 @let data = format!("M{} {}V{}", number(flag.x), number(top), number(frame.axis_y));
                 "\n" path d=(data) stroke-width=(if flag.is_tick { "0.7" } else { "1" })
@@ -99,8 +99,9 @@ fn labels_of_steps(picture: &Picture<'_>, frame: &Frame) -> Markup {
         g font-size=(number(SMALL)) {
             @for (flag, step) in frame.flags.flags.iter().zip(&frame.steps) {
                 @if !flag.label.is_empty() {
-                    @let (x, y) = (number(flag.x + OFFSET), flag_base(frame, flag.row));
-                    "\n" g {
+                    @let y = flag_base(frame, flag.row);
+                    @let x = number(if flag.leftwards { flag.x - OFFSET } else { flag.x + OFFSET });
+                    "\n" g text-anchor=(if flag.leftwards { "end" } else { "start" }) {
                         title { (clean(&step.words(picture.scenario))) }
                         text x=(x) y=(number(y)) style=(HALO) { (clean(&flag.label)) }
                         @if !flag.sets.is_empty() {
@@ -190,9 +191,7 @@ fn axis(frame: &Frame) -> Markup {
                 }
             }
         }
-        "\n" text x=(number(frame.left - 8.0)) y=(number(y + 17.0)) text-anchor="end" {
-            (format!("time [{}]", frame.axis.unit))
-        }
+        "\n" text x=(number(MARGIN)) y=(number(y + 17.0)) { (format!("time [{}]", frame.axis.unit)) }
         "\n" text x=(number(frame.right + 8.0)) y=(number(y + 17.0)) { (frame.values_caption) }
     }
 }
@@ -243,7 +242,7 @@ fn rests(frame: &Frame) -> Markup {
             }
         }
         @if frame.rests.iter().any(|rest| rest.is_rest) {
-            "\n" text x=(number(frame.left - 8.0)) y=(number(y + 32.0)) text-anchor="end" fill=(REST) { "settling time" }
+            "\n" text x=(number(MARGIN)) y=(number(y + 32.0)) fill=(REST) { "settling time" }
         }
     }
 }

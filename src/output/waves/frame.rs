@@ -28,8 +28,12 @@ const PITCH: f64 = 27.0;
 pub(super) const SWING: f64 = 16.0;
 /// One line of small text.
 pub(super) const LINE: f64 = 15.0;
+/// A bracket and its label.
+const BRACKET: f64 = 18.0;
 /// Rows of labels below one lane, and below the axis.
 const LABEL_ROWS: usize = 3;
+/// Marks without a label that are closer than this to the one before are not drawn.
+const CLOSE: f64 = 1.5;
 /// Most steps that the key lists.
 const KEY: usize = 60;
 /// Most names that a note lists.
@@ -115,7 +119,7 @@ impl Frame {
         let range = (range.0, range.1.max(range.0 + Span::TICK));
         let shown = |at: Time| range.0 <= at && at <= range.1;
 
-        let names = nets.iter().map(|net| width(words::net(scenario, *net), BODY)).fold(88.0, f64::max);
+        let names = nets.iter().map(|net| width(words::net(scenario, *net), BODY)).fold(94.0, f64::max);
         let left = MARGIN + names.min(NAMES) + 8.0;
         let right = WIDTH - MARGIN - VALUES;
         let steps: Vec<Step> = front.map_or_else(Vec::new, |run| marks::steps(scenario, run));
@@ -128,7 +132,7 @@ impl Frame {
         let axis = Axis::new(range, &busy, left, right - TAIL, scenario.unit);
 
         let at: Vec<(f64, &Step)> = steps.iter().map(|step| (axis.x(step.at), step)).collect();
-        let flags = flags::place(&at, WIDTH - MARGIN);
+        let flags = flags::place(&at, (MARGIN, WIDTH - MARGIN));
         let row = if flags.two_lines { 2.0 * LINE - 2.0 } else { LINE };
         let lanes_top = 34.0 + flags.rows as f64 * row + 8.0;
 
@@ -167,7 +171,7 @@ impl Frame {
             let (top, bottom) = (y + 5.0, y + 5.0 + SWING);
             let own: Vec<&Spot> = spots.iter().filter(|spot| spot.net == Some(*net)).collect();
             let (brackets, rows) = brackets(&own, &axis, left, bottom + 4.0, &mut missing);
-            y += PITCH + if rows > 0 { rows as f64 * LINE - 2.0 } else { 0.0 };
+            y += PITCH + rows as f64 * BRACKET - if rows > 0 { 3.0 } else { 0.0 };
             let name = cut_middle(&full_name, BODY, left - 8.0 - MARGIN).unwrap_or_else(|| full_name.clone());
             lanes.push(Lane { net: *net, name, full_name, top, bottom, waves, value, is_open, brackets });
         }
@@ -179,11 +183,11 @@ impl Frame {
         let (whole, rows) = brackets(&others, &axis, left, y + 5.0, &mut missing);
         let whole_caption = (!others.is_empty()).then_some(y + 18.0);
         if !others.is_empty() {
-            y += 10.0 + rows.max(1) as f64 * LINE;
+            y += 6.0 + rows.max(1) as f64 * BRACKET;
         }
         let axis_y = y + 12.0;
         let shown_endings: Vec<&Ending> = endings.iter().filter(|ending| shown(ending.at)).collect();
-        let (rests, rows) = rests(&shown_endings, &axis, axis_y, &mut missing);
+        let (rests, rows) = rests(&shown_endings, &axis, left, axis_y, &mut missing);
         let mut y = axis_y + 20.0 + rows as f64 * LINE;
 
         let edges: usize = lanes.iter().flat_map(|lane| &lane.waves).map(|wave| wave.edges.len()).sum();
@@ -205,7 +209,8 @@ impl Frame {
         }
 
         let full_title = title(picture, sheet);
-        let cut = cut_end(&full_title, 14.0, WIDTH - 2.0 * MARGIN);
+        // bold letters are wider than the estimate
+        let cut = cut_end(&full_title, 14.0, (WIDTH - 2.0 * MARGIN) / 1.15);
         let description = describe(picture, &lanes, &steps, &spots, range);
         Frame {
             title: cut.unwrap_or_else(|| full_title.clone()),
@@ -273,30 +278,32 @@ fn brackets(spots: &[&Spot], axis: &Axis, left: f64, y: f64, missing: &mut bool)
         let text = cut_end(&spot.label, SMALL, room).unwrap_or_else(|| spot.label.clone());
         let wide = width(&text, SMALL);
         let start = (f64::midpoint(from, to) - wide / 2.0).clamp(left, WIDTH - MARGIN - wide);
-        let row = rows.place(start, start + wide + 10.0);
+        let (left, right) = (from - grow, to + grow);
+        let row = rows.place(start.min(left), (start + wide).max(right) + 10.0);
         *missing |= row.is_none();
-        all.push(Bracket {
-            left: from - grow,
-            right: to + grow,
-            y,
-            label: row.map(|row| (text, start, y + 14.0 + row as f64 * LINE)),
-            title: spot.title.clone(),
-            breaks_rule: spot.breaks_rule,
-        });
+        if row.is_none() && all.last().is_some_and(|last: &Bracket| right - last.right < CLOSE) {
+            continue;
+        }
+        let y = y + row.unwrap_or(0) as f64 * BRACKET;
+        let label = row.map(|_| (text, start, y + 14.0));
+        all.push(Bracket { left, right, y, label, title: spot.title.clone(), breaks_rule: spot.breaks_rule });
     }
     (all, rows.len())
 }
 
 /// Places the ends of windows below the axis. Gives back the rows.
-fn rests(endings: &[&Ending], axis: &Axis, axis_y: f64, missing: &mut bool) -> (Vec<Rest>, usize) {
+fn rests(endings: &[&Ending], axis: &Axis, left: f64, axis_y: f64, missing: &mut bool) -> (Vec<Rest>, usize) {
     let mut rows = Rows::new(LABEL_ROWS);
     let mut all = Vec::with_capacity(endings.len());
     for ending in endings {
         let x = axis.x(ending.at);
         let half = width(&ending.label, SMALL) / 2.0;
-        let middle = x.min(WIDTH - MARGIN - half).max(MARGIN + half);
+        let middle = x.min(WIDTH - MARGIN - half).max(left - 8.0 + half);
         let row = rows.place(middle - half - 4.0, middle + half + 4.0);
         *missing |= row.is_none();
+        if row.is_none() && all.last().is_some_and(|last: &Rest| x - last.x < CLOSE) {
+            continue;
+        }
         all.push(Rest {
             x,
             is_rest: ending.is_rest,
