@@ -166,6 +166,28 @@ fn clock_edges_and_cut_windows() {
 }
 
 #[test]
+fn a_second_run_is_dashed() {
+    let scenario = lock();
+    let asked = Asked::of(&scenario);
+    let (front, behind) = (run(&scenario, Which::Typ), run(&scenario, Which::Max));
+    let mut picture = Picture::of_run(&scenario, &asked, &front, "waves");
+    picture.layers.push(waves::Layer::Run(&behind));
+    let svg = &waves::sheets(&picture)[0].svg;
+    well_formed(svg);
+    golden("two-runs.svg", svg);
+}
+
+#[test]
+fn a_part_of_a_run() {
+    let scenario = chain(4, 20, "30");
+    let asked = Asked::of(&scenario);
+    let report = run(&scenario, Which::Typ);
+    let range = Some((at("100"), at("220")));
+    let picture = Picture { range, ..Picture::of_run(&scenario, &asked, &report, "waves") };
+    golden("part.svg", &waves::sheets(&picture)[0].svg);
+}
+
+#[test]
 fn many_nets_take_several_sheets() {
     let scenario = chain(45, 1, "10");
     let sheets = draw(&scenario, &run(&scenario, Which::Typ));
