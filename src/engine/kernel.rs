@@ -475,7 +475,9 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         let at_rest = self.queue_is_empty() && !moving;
         self.find_owners(plan, at_rest);
         let mut due = std::mem::take(&mut self.due);
-        self.agenda.take(time, &plan.stimulus, instance, quiet_since, &mut due);
+        let inputs = &self.inputs;
+        let present = |net: NetId| inputs[net.index()].value() == Value::One;
+        self.agenda.take(time, &plan.stimulus, instance, quiet_since, present, &mut due);
         if let Some(&moment) = due.moments.first() {
             if let Some(window) = open.take() {
                 let end = match at_rest {
