@@ -4,8 +4,9 @@ use maud::{Markup, html};
 
 use super::Picture;
 use super::flags::OFFSET;
-use super::frame::{Bracket, Frame, LINE, Lane, MARGIN, SWING, WIDTH};
+use super::frame::{Frame, LINE, Lane, MARGIN, SPACE, SWING, WIDTH};
 use super::lane::{Line, line, number};
+use super::places::Bracket;
 use crate::output::ink::{BODY, FINDING, INK, QUIET, REST, SECOND, SMALL};
 use crate::output::words::clean;
 
@@ -33,7 +34,7 @@ pub(super) fn svg(picture: &Picture<'_>, frame: &Frame) -> String {
                     stroke=(QUIET) stroke-width="0.6" {}
             }
             @if let Some(y) = frame.whole_caption {
-                "\n" text x=(number(frame.left - 8.0)) y=(number(y)) text-anchor="end" { "whole circuit" }
+                "\n" text x=(number(frame.left - SPACE)) y=(number(y)) text-anchor="end" { "whole circuit" }
                 @for bracket in &frame.whole { "\n" (draw_bracket(bracket)) }
             }
             "\n" (axis(frame))
@@ -90,8 +91,7 @@ fn steps(picture: &Picture<'_>, frame: &Frame) -> Markup {
 
 /// The base line of the first line of labels in a row.
 fn flag_base(frame: &Frame, row: usize) -> f64 {
-    let pitch = if frame.flags.two_lines { 2.0 * LINE - 2.0 } else { LINE };
-    frame.lanes_top - 8.0 - (row + 1) as f64 * pitch + 11.0
+    frame.lanes_top - 8.0 - (row + 1) as f64 * frame.flags.pitch() + 11.0
 }
 
 fn labels_of_steps(picture: &Picture<'_>, frame: &Frame) -> Markup {
@@ -121,7 +121,7 @@ fn draw_lane(id: &str, lane: &Lane, frame: &Frame) -> Markup {
     html! {
         g id=(format!("{id}-net-{}", lane.net.0)) {
             title { (format!("{}: {}", lane.full_name, lane.value)) }
-            text x=(number(frame.left - 8.0)) y=(number(middle)) text-anchor="end" font-size=(number(BODY)) {
+            text x=(number(frame.left - SPACE)) y=(number(middle)) text-anchor="end" font-size=(number(BODY)) {
                 (lane.name)
             }
             // further runs first: the front one lies on top
@@ -132,7 +132,7 @@ fn draw_lane(id: &str, lane: &Lane, frame: &Frame) -> Markup {
                 path d=(format!("M{} {}h18", number(end + 3.0), number(lane.bottom - SWING / 2.0)))
                     stroke=(INK) stroke-width="1.6" stroke-dasharray="2 3" {}
             }
-            text x=(number(frame.right + 8.0)) y=(number(middle)) font-size=(number(BODY)) { (lane.value) }
+            text x=(number(frame.right + SPACE)) y=(number(middle)) font-size=(number(BODY)) { (lane.value) }
             @for bracket in &lane.brackets { (draw_bracket(bracket)) }
         }
     }
@@ -192,7 +192,7 @@ fn axis(frame: &Frame) -> Markup {
             }
         }
         "\n" text x=(number(MARGIN)) y=(number(y + 17.0)) { (format!("time [{}]", frame.axis.unit)) }
-        "\n" text x=(number(frame.right + 8.0)) y=(number(y + 17.0)) { (frame.values_caption) }
+        "\n" text x=(number(frame.right + SPACE)) y=(number(y + 17.0)) { (frame.values_caption) }
     }
 }
 

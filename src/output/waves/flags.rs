@@ -1,5 +1,6 @@
 //! Where the labels of steps go: in full on up to three rows, or as numbers with a key below the picture.
 
+use super::frame::LINE;
 use super::marks::Step;
 use crate::output::ink::SMALL;
 use crate::output::measure::{Rows, cut_end, width};
@@ -27,6 +28,13 @@ pub(super) struct Flags {
     pub two_lines: bool,
     /// Steps are numbered, and a key must say which is which.
     pub numbered: bool,
+}
+
+impl Flags {
+    /// From one row of labels to the next.
+    pub fn pitch(&self) -> f64 {
+        if self.two_lines { 2.0 * LINE - 2.0 } else { LINE }
+    }
 }
 
 /// The label of one step, as shown. Either text may be empty.
