@@ -79,7 +79,7 @@ fn grid() -> Scenario {
                 let c = c % columns;
                 if r == 0 { format!("i{c}") } else { format!("g{}.{c}", r - 1) }
             };
-            b.gate(format!("g{r}.{c}"), Function::Xor, [source(c), source(c + 7)].iter().map(String::as_str))
+            b.gate(format!("g{r}.{c}"), Function::Nand, [source(c), source(c + 7)].iter().map(String::as_str))
                 .delay(["6", "9", "14"]);
         }
     }
@@ -114,25 +114,35 @@ impl Observer for Count {
     }
 }
 
-/// Runs typical cases with an observer; the items are events.
+/// Runs one sample again and again with an observer, reset included; the items are events.
 fn run_with<O: Observer<Tag = ()>>(bencher: Bencher<'_, '_>, scenario: &Scenario, mut observer: O) {
     let control = Control::default();
     let program = Program::new(scenario, &control).expect("it begins at rest");
     let mut machine = program.machine::<()>();
-    let mut instance = Instance::of(scenario, &Which::Typ);
-    let mut sampler = Sampler::new(scenario);
+    let instance = Instance::of(scenario, &Which::Sample(7));
     let mut count = Count::default();
     machine.run(&instance, &control, &mut count);
     assert!(count.0 > 500, "the circuit moves: {} events", count.0);
-    let mut sample = 0;
     bencher.counter(ItemsCount::new(count.0)).bench_local(|| {
-        sampler.fill(sample, &mut instance);
-        sample += 1;
         assert!(machine.run(black_box(&instance), &control, &mut observer));
     });
 }
 
-/// Kernel alone, drawing and reset included.
+/// Drawing the delays of one sample; the items are quantities.
+#[divan::bench(args = CIRCUITS)]
+fn draw(bencher: Bencher<'_, '_>, circuit: &str) {
+    let scenario = scenario(circuit);
+    let mut sampler = Sampler::new(&scenario);
+    let mut instance = Instance::of(&scenario, &Which::Typ);
+    let mut sample = 0;
+    bencher.counter(ItemsCount::new(scenario.circuit.gate_count())).bench_local(|| {
+        sampler.fill(sample, &mut instance);
+        sample += 1;
+        assert!(instance.delays.gate[0][0] > stillgate::time::Span::ZERO);
+    });
+}
+
+/// Kernel alone.
 #[divan::bench(args = CIRCUITS)]
 fn kernel(bencher: Bencher<'_, '_>, circuit: &str) {
     run_with(bencher, &scenario(circuit), Deaf);

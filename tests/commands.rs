@@ -136,6 +136,7 @@ fn a_bad_command_line_gives_exit_code_2() {
         &["review", "--draw", "sideways"],
         &["run", "--delays", "sample:x"],
         &["run", "--delays", "no-such-case.toml"],
+        &["run", "--nets", "grene"],
         &[],
     ] {
         let output = stillgate(folder.path(), arguments);

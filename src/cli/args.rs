@@ -92,6 +92,9 @@ pub struct Running {
     /// Which case: typ, min, max, sample:N, or an instance file
     #[arg(long, value_name = "CASE", default_value = "typ")]
     pub delays: String,
+    /// Nets to draw, in this order, separated by commas; default all that fit
+    #[arg(long, value_name = "A,B,...", value_delimiter = ',')]
+    pub nets: Vec<String>,
     /// Exit with 1 if a rule is broken in this run
     #[arg(long)]
     pub strict: bool,

@@ -122,11 +122,16 @@ impl Agenda {
                     self.later.push((at + delay, net, value));
                 }
             }
-            self.later.sort_by(|a, b| b.cmp(a));
+            if self.later.len() > 1 {
+                self.later.sort_by(|a, b| b.cmp(a));
+            }
             self.step += 1;
         }
-        let first_edge = stimulus.moments.len() as u32 - stimulus.clocks.iter().map(|c| 2 * c.count).sum::<u32>();
-        let mut base = first_edge;
+        if self.clocks.is_empty() {
+            return;
+        }
+        let edges: u32 = stimulus.clocks.iter().map(|clock| 2 * clock.count).sum();
+        let mut base = stimulus.moments.len() as u32 - edges;
         for (c, clock) in stimulus.clocks.iter().enumerate() {
             let (edge, time) = self.clocks[c];
             if edge != OVER && time <= at {
