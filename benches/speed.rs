@@ -66,9 +66,9 @@ fn dividers(stages: usize, edges: usize) -> Scenario {
     b.finish().expect("the dividers are a good scenario")
 }
 
-/// 100,000 gates: rows of NANDs, each gate reads two gates of the row before, started by one wide input.
+/// 100,000 gates: 20 rows of 5,000 XORs, each gate reads two gates of the row before; 500 inputs change at each step.
 fn grid() -> Scenario {
-    let (rows, columns) = (1000usize, 100usize);
+    let (rows, columns) = (20usize, 5000usize);
     let mut b = Builder::new("grid");
     for c in 0..columns {
         b.input(format!("i{c}"), c % 3 == 0);
@@ -79,15 +79,19 @@ fn grid() -> Scenario {
                 let c = c % columns;
                 if r == 0 { format!("i{c}") } else { format!("g{}.{c}", r - 1) }
             };
-            b.gate(format!("g{r}.{c}"), Function::Nand, [source(c), source(c + 7)].iter().map(String::as_str))
-                .delay(["6", "9", "14"]);
+            let sources = [source(c), source(c + 7)];
+            b.gate(format!("g{r}.{c}"), Function::Xor, sources.iter().map(String::as_str)).delay(["6", "9", "14"]);
         }
     }
     for i in 0..4 {
-        b.step(NewStep::rest("10").set(format!("i{}", 11 * i), i % 2 == 1));
+        let mut step = NewStep::rest("10");
+        for c in (i..columns).step_by(10) {
+            step = step.set(format!("i{c}"), c % 3 != 0);
+        }
+        b.step(step);
     }
     b.output(format!("g{}.0", rows - 1));
-    b.limit_transitions(100_000_000);
+    b.limit_transitions(100_000_000u64);
     b.finish().expect("the grid is a good scenario")
 }
 

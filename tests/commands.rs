@@ -207,3 +207,18 @@ fn a_folder_that_cannot_be_made_is_named() {
     assert_eq!(output.status.code(), Some(2));
     assert!(text(&output.stderr).contains("taken"), "{}", text(&output.stderr));
 }
+
+#[test]
+fn the_scenario_in_the_readme_is_a_good_one() {
+    let readme = std::fs::read_to_string(project("README.md")).unwrap();
+    let example = readme.split("```toml\n").nth(1).and_then(|rest| rest.split("```").next()).expect("an example");
+    let folder = tempfile::tempdir().unwrap();
+    std::fs::write(folder.path().join("latch.toml"), example).unwrap();
+    let output = stillgate(folder.path(), &["review", "latch.toml", "--samples", "500", "--strict"]);
+    assert!(output.status.success(), "{}{}", text(&output.stdout), text(&output.stderr));
+    assert!(text(&output.stdout).starts_with("No failure found in 500 draws"), "{}", text(&output.stdout));
+    // every document that it links to is there
+    for link in readme.split("](").skip(1).filter_map(|rest| rest.split(')').next()) {
+        assert!(Path::new(&project(link)).exists(), "the README links to {link}");
+    }
+}
