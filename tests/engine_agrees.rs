@@ -1,7 +1,7 @@
 //! Every machine tells the same story as the slow engine, on thousands of random small circuits in which ties are the
 //! rule.
 
-use stillgate::circuit::{Function, NetId};
+use stillgate::circuit::{Circuit, Compiled, Function, NetId};
 use stillgate::control::Control;
 use stillgate::delay::Filter;
 use stillgate::engine::{End, Hit, Program};
@@ -26,11 +26,21 @@ struct Met {
     time: usize,
     swallowed: usize,
     unknown_left: usize,
+    /// Gates of more than six nets: counting, parity, table.
+    wide: [usize; 3],
 }
 
 impl Met {
-    fn count(&mut self, record: &Record) {
+    fn count(&mut self, circuit: &Circuit, record: &Record) {
         self.cases += 1;
+        for gate in circuit.gates() {
+            match circuit.compiled(gate) {
+                Compiled::Table(_) => {}
+                Compiled::Count { .. } => self.wide[0] += 1,
+                Compiled::Parity { .. } => self.wide[1] += 1,
+                Compiled::Wide(_) => self.wide[2] += 1,
+            }
+        }
         self.swallowed += record.swallowed.len();
         for window in &record.windows {
             *match window.end {
@@ -142,7 +152,7 @@ fn compare(scenario: &Scenario, rest: &Bits, instance: &Instance, of: &str) -> R
 fn agree(count: u64, kind: Kind) -> Met {
     let mut met = Met::default();
     for Case { name, scenario, rest, instance, .. } in cases(3 * count, kind) {
-        met.count(&compare(&scenario, &rest, &instance, &name));
+        met.count(&scenario.circuit, &compare(&scenario, &rest, &instance, &name));
     }
     met
 }
@@ -168,6 +178,7 @@ fn random_starts() {
     let kind = Kind { begin: Start::Random, gates: (2, 12), ..PLAIN };
     let met = agree(600, Kind { clocks: true, ..kind });
     assert!(met.settled > 300 && met.cut > 300 && met.exact > 50 && met.transitions > 50 && met.time > 20, "{met:?}");
+    assert!(met.wide.iter().all(|gates| *gates > 20), "{met:?}");
     let met = agree(600, Kind { filters: Filters::Mixed, wires: 0.3, delays: Lengths::Short, clocks: true, ..kind });
     assert!(met.settled > 300 && met.cut > 300 && met.exact > 20 && met.transitions > 50, "{met:?}");
 }
@@ -177,6 +188,7 @@ fn unknown_starts() {
     let kind = Kind { begin: Start::Unknown, gates: (2, 12), wires: 0.2, ..PLAIN };
     let met = agree(700, kind);
     assert!(met.unknown_left > 100 && met.settled > 300 && met.cut > 100, "{met:?}");
+    assert!(met.wide.iter().all(|gates| *gates > 20), "{met:?}");
     let met = agree(300, Kind { clocks: true, delays: Lengths::Short, ..kind });
     assert!(met.unknown_left > 50 && met.settled > 100 && met.cut > 100, "{met:?}");
 }

@@ -3,13 +3,19 @@
 //! `STILLGATE_GOLDEN=rewrite cargo test golden` writes the files anew; look at the difference before it is kept.
 
 mod cases;
+mod results;
 
 use std::path::PathBuf;
 
 use cases::*;
+use stillgate::circuit::Function;
 use stillgate::findings::{Asked, Shape};
 use stillgate::instance::Which;
 use stillgate::output::waves::{self, Picture};
+use stillgate::output::text::{self, Page, Style};
+use stillgate::output::{bundle, charts, json, tables};
+use stillgate::review::RunReport;
+use stillgate::scenario::Scenario;
 
 /// Compares a text with its golden file, or writes the file.
 fn golden(name: &str, text: &str) {
@@ -29,14 +35,244 @@ fn golden(name: &str, text: &str) {
     );
 }
 
+/// All sheets of a run with all its nets.
+fn draw(scenario: &Scenario, report: &RunReport) -> Vec<String> {
+    let asked = Asked::of(scenario);
+    let sheets = waves::sheets(&Picture::of_run(scenario, &asked, report, "waves"));
+    sheets.into_iter().map(|sheet| sheet.svg).collect()
+}
+
+/// A small check of XML: every tag is closed in order, and `&` begins an entity.
+fn well_formed(svg: &str) {
+    assert!(!svg.chars().any(|letter| letter.is_control() && letter != '\n'), "a control character");
+    let mut open: Vec<&str> = Vec::new();
+    let mut rest = svg;
+    while let Some(at) = rest.find('<') {
+        let (text, tag) = rest.split_at(at);
+        assert!(!text.contains('>'), "a bare > in {text:?}");
+        for entity in text.split('&').skip(1) {
+            let known = ["amp;", "lt;", "gt;", "quot;", "apos;"].iter().any(|it| entity.starts_with(it));
+            assert!(known || entity.starts_with('#'), "a bare & in {text:?}");
+        }
+        let end = tag.find('>').expect("a tag ends");
+        let inner = &tag[1..end];
+        assert_eq!(inner.matches('"').count() % 2, 0, "an open quote in <{inner}>");
+        if let Some(name) = inner.strip_prefix('/') {
+            assert_eq!(open.pop(), Some(name.trim()), "closed out of order");
+        } else if !inner.ends_with('/') {
+            open.push(inner.split_whitespace().next().unwrap());
+        }
+        rest = &tag[end + 1..];
+    }
+    assert!(open.is_empty(), "never closed: {open:?}");
+}
+
 #[test]
 fn waves_of_the_lock() {
     let scenario = lock();
     let asked = Asked::of(&scenario);
     let mut report = run(&scenario, Which::Typ);
-    report.facts.push(glitch(net(&scenario, "open_upper"), Shape::Static0, 3, "640", "652"));
+    report.facts.push(glitch(net(&scenario, "open_upper"), Shape::Static0, 3, "628", "631.1"));
     let sheets = waves::sheets(&Picture::of_run(&scenario, &asked, &report, "waves"));
     assert_eq!(sheets.len(), 1);
     golden("lock.svg", &sheets[0].svg);
     golden("lock.csv", &waves::csv(&scenario, &report.trace));
+}
+
+#[test]
+fn waves_of_a_hazard() {
+    let scenario = hazard();
+    let asked = Asked::of(&scenario);
+    let mut report = run(&scenario, Which::Typ);
+    report.facts = hazard_facts(&scenario);
+    let sheets = waves::sheets(&Picture::of_run(&scenario, &asked, &report, "hazard"));
+    golden("hazard.svg", &sheets[0].svg);
+}
+
+#[test]
+fn waves_of_a_ring() {
+    let scenario = ring(100);
+    let asked = Asked::of(&scenario);
+    let report = run(&scenario, Which::Min);
+    let sheets = waves::sheets(&Picture::of_run(&scenario, &asked, &report, "ring"));
+    golden("ring.svg", &sheets[0].svg);
+}
+
+#[test]
+fn waves_from_an_unknown_start() {
+    let scenario = unknown();
+    let asked = Asked::of(&scenario);
+    let report = run(&scenario, Which::Sample(7));
+    let sheets = waves::sheets(&Picture::of_run(&scenario, &asked, &report, "unknown"));
+    golden("unknown.svg", &sheets[0].svg);
+    golden("unknown.csv", &waves::csv(&scenario, &report.trace));
+}
+
+#[test]
+fn labels_of_eight_steps_are_staggered() {
+    let scenario = chain(5, 8, "30");
+    golden("eight-steps.svg", &draw(&scenario, &run(&scenario, Which::Typ))[0]);
+}
+
+#[test]
+fn forty_steps_are_numbered_and_have_a_key() {
+    let scenario = chain(4, 40, "30");
+    golden("forty-steps.svg", &draw(&scenario, &run(&scenario, Which::Typ))[0]);
+}
+
+#[test]
+fn long_quiet_stretches_are_cut() {
+    let scenario = chain(6, 5, "250000");
+    golden("quiet.svg", &draw(&scenario, &run(&scenario, Which::Max))[0]);
+}
+
+#[test]
+fn two_nets_and_one_step() {
+    let scenario = chain(2, 1, "0.000003");
+    golden("two-nets.svg", &draw(&scenario, &run(&scenario, Which::Typ))[0]);
+}
+
+#[test]
+fn very_long_names_and_odd_titles() {
+    let scenario = long_names();
+    let sheets = draw(&scenario, &run(&scenario, Which::Typ));
+    assert!(sheets[0].contains(&"n".repeat(180)), "the full name is in a title element");
+    golden("long-names.svg", &sheets[0]);
+}
+
+#[test]
+fn a_run_without_steps() {
+    let scenario = Case::new("Nothing happens").input("a", 1).gate("b", Function::Not, &["a"], ["1", "1", "1"]).build();
+    let report = run(&scenario, Which::Typ);
+    golden("empty.svg", &draw(&scenario, &report)[0]);
+    golden("empty.csv", &waves::csv(&scenario, &report.trace));
+}
+
+#[test]
+fn thousands_of_edges_become_blocks() {
+    let scenario = ring(9_000);
+    let mut report = run(&scenario, Which::Typ);
+    without_recurrence(&scenario, &mut report, 8_000);
+    let svg = &draw(&scenario, &report)[0];
+    assert!(svg.len() < 60_000, "{} bytes", svg.len());
+    golden("blocks.svg", svg);
+}
+
+#[test]
+fn clock_edges_and_cut_windows() {
+    let scenario = clocked();
+    let report = run(&scenario, Which::Typ);
+    golden("clock.svg", &draw(&scenario, &report)[0]);
+}
+
+#[test]
+fn many_nets_take_several_sheets() {
+    let scenario = chain(45, 1, "10");
+    let sheets = draw(&scenario, &run(&scenario, Which::Typ));
+    assert_eq!(sheets.len(), 2);
+    golden("sheet-2.svg", &sheets[1]);
+}
+
+#[test]
+fn nets_without_a_sheet_are_named() {
+    let scenario = chain(400, 1, "10");
+    let asked = Asked::of(&scenario);
+    let report = run(&scenario, Which::Typ);
+    let all = waves::sheets(&Picture::of_run(&scenario, &asked, &report, "waves"));
+    assert_eq!(all.len(), waves::MOST_SHEETS);
+    let shown: usize = all.iter().map(|sheet| sheet.nets.len()).sum();
+    assert_eq!(shown + all[0].left_out.len(), 400, "every net is shown or named as left out");
+    assert!(all[0].svg.contains("Left out: 80 nets (") && all[0].svg.contains("--nets"));
+    let picture = Picture { nets: waves::Nets::Telling, ..Picture::of_run(&scenario, &asked, &report, "waves") };
+    let telling = waves::sheets(&picture);
+    assert_eq!((telling.len(), telling[0].nets.len()), (1, waves::MOST_LANES));
+    assert!(telling[0].nets.contains(&net(&scenario, "gauge_399")), "the output is watched");
+}
+
+#[test]
+fn the_files_of_a_review() {
+    let scenario = lock();
+    let review = results::review(&scenario);
+    let bundle = bundle::of_review(&scenario, &review);
+    let names: Vec<&str> = bundle.files.iter().map(|file| file.name.as_str()).collect();
+    let wanted = [
+        "result.json",
+        "waves-typical.svg",
+        "waves-typical.csv",
+        "waves-never-open-upper-1-open-lower-1-together.svg",
+        "waves-never-open-upper-1-open-lower-1-together.csv",
+        "waves-critical-race-together.svg",
+        "waves-critical-race-together.csv",
+        "waves-glitch-open-lower-together.svg",
+        "waves-glitch-open-lower-together.csv",
+        "settling.svg",
+        "settling.csv",
+        "outcomes.csv",
+        "findings.csv",
+        "rules.csv",
+        "states.csv",
+    ];
+    assert_eq!(names, wanted);
+    assert!(bundle.notes[0].starts_with("3 of 6 findings have a picture"), "{:?}", bundle.notes);
+    assert_eq!(bundle, bundle::of_review(&scenario, &review), "the same bytes again");
+}
+
+/// Every sheet is XML: tags match, and what a user wrote is escaped.
+#[test]
+fn every_picture_is_well_formed() {
+    for scenario in [lock(), hazard(), ring(100), unknown(), long_names(), clocked(), chain(45, 3, "10")] {
+        for svg in draw(&scenario, &run(&scenario, Which::Typ)) {
+            well_formed(&svg);
+        }
+        well_formed(&charts::settling(&scenario, &results::sweep_of_nothing(&scenario)));
+    }
+    let scenario = lock();
+    well_formed(&charts::settling(&scenario, &results::sweep(&scenario, &Asked::of(&scenario))));
+}
+
+#[test]
+fn settling_chart() {
+    let scenario = lock();
+    let report = results::sweep(&scenario, &Asked::of(&scenario));
+    golden("settling.svg", &charts::settling(&scenario, &report));
+    golden("settling.csv", &tables::settling(&scenario, &report));
+}
+
+#[test]
+fn documents() {
+    let scenario = lock();
+    let review = results::review(&scenario);
+    golden("check.json", &json::check(&scenario));
+    golden("states.json", &json::states(&scenario, &review.states));
+    golden("run.json", &json::run(&scenario, &review.asked, review.typical.as_ref().unwrap()));
+    golden("sweep.json", &json::sweep(&scenario, &review.asked, &review.sweep));
+    golden("review.json", &json::review(&scenario, &review));
+}
+
+#[test]
+fn lists() {
+    let scenario = lock();
+    let review = results::review(&scenario);
+    golden("outcomes.csv", &tables::outcomes(&scenario, &review.sweep));
+    golden("findings.csv", &tables::findings(&scenario, &review.asked, &review.sweep));
+    golden("rules.csv", &tables::rules(&scenario, &review.sweep));
+    golden("states.csv", &tables::states(&scenario, &review.states));
+}
+
+#[test]
+fn texts() {
+    let scenario = lock();
+    let mut review = results::review(&scenario);
+    let page = Page { style: Style::Plain, width: 100, scenario: Some("locks/interlock.toml") };
+    let narrow = Page { width: 60, ..page };
+    let colour = Page { style: Style::Ansi, ..page };
+    golden("check.txt", &text::check(&scenario, &page));
+    golden("states.txt", &text::states(&scenario, &review.states, &page));
+    golden("sweep.txt", &text::sweep(&scenario, &review.asked, &review.sweep, &review.verdict, &page));
+    golden("review.txt", &text::review(&scenario, &review, &page));
+    golden("review-60.txt", &text::review(&scenario, &review, &narrow));
+    golden("review-colour.txt", &text::review(&scenario, &review, &colour));
+    let mut typical = review.typical.take().unwrap();
+    typical.facts.push(glitch(net(&scenario, "open_upper"), Shape::Static0, 3, "628", "631.1"));
+    golden("run.txt", &text::run(&scenario, &review.asked, &typical, &page));
 }

@@ -1,5 +1,6 @@
 //! The promises to the user, one module each; `outside` checks against published sources.
 
+mod commands;
 mod draws;
 mod engine_agrees;
 mod engine_properties;

@@ -3,7 +3,7 @@
 use std::process::ExitCode;
 
 use super::args::Checking;
-use super::common::{Failure, load, say, style};
+use super::common::{Failure, called, load, page, say};
 use crate::output::{json, text};
 
 pub fn run(arguments: &Checking) -> Result<ExitCode, Failure> {
@@ -11,7 +11,7 @@ pub fn run(arguments: &Checking) -> Result<ExitCode, Failure> {
     if arguments.input.json {
         say(&json::check(&scenario))?;
     } else if !arguments.input.quiet {
-        say(&text::check(&scenario, &style()))?;
+        say(&text::check(&scenario, &page(called(&arguments.input).as_deref())))?;
     }
     Ok(ExitCode::SUCCESS)
 }

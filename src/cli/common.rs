@@ -12,8 +12,8 @@ use super::args::{Draws, Folder, Input};
 use crate::control::Control;
 use crate::delay::Marginal;
 use crate::engine::Program;
-use crate::output::bundle::{self, File};
-use crate::output::text::Style;
+use crate::output::bundle::{self, Bundle};
+use crate::output::text::{Page, Style};
 use crate::reader::{self, Diagnostics, Loaded, ReadError};
 use crate::review::{Call, ReviewError};
 use crate::scenario::Scenario;
@@ -58,7 +58,7 @@ pub const INTERRUPTED: u8 = 130;
 impl From<ReadError> for Failure {
     fn from(error: ReadError) -> Failure {
         match error {
-            ReadError::Faults(faults) => Failure::Faults(Box::new(faults)),
+            ReadError::Text(faults) => Failure::Faults(Box::new(faults)),
             other => Failure::Bad(other.to_string()),
         }
     }
@@ -93,10 +93,18 @@ fn colour(stream: &impl IsTerminal) -> bool {
     stream.is_terminal() && std::env::var_os("NO_COLOR").is_none_or(|value| value.is_empty())
 }
 
-/// The style of texts on standard output.
-pub fn style() -> Style {
-    Style::new(colour(&std::io::stdout()))
+/// How texts on standard output look: colour and width of the terminal, and how the user calls the scenario.
+pub fn page(called: Option<&str>) -> Page<'_> {
+    let terminal = std::io::stdout();
+    Page {
+        style: if colour(&terminal) { Style::Ansi } else { Style::Plain },
+        width: console::Term::stdout().size_checked().map_or(WIDTH, |(_, columns)| usize::from(columns)),
+        scenario: called,
+    }
 }
+
+/// Columns where there is no terminal.
+const WIDTH: usize = 100;
 
 /// Writes to standard error. Nobody may be listening; that is no reason to fail.
 pub fn say_aside(text: &str) {
@@ -154,10 +162,13 @@ pub fn folder(input: &Input, folder: &Folder) -> PathBuf {
 }
 
 /// Writes files into a folder and says so on standard error.
-pub fn write(files: &[File], into: &Path, quiet: bool) -> Result<(), Failure> {
-    bundle::write(into, files)?;
+pub fn write(bundle: &Bundle, into: &Path, quiet: bool) -> Result<(), Failure> {
+    bundle::write(into, &bundle.files)?;
     if !quiet {
-        say_aside(&format!("{} files in {}\n", files.len(), into.display()));
+        for note in &bundle.notes {
+            say_aside(&format!("{note}\n"));
+        }
+        say_aside(&format!("{} files in {}\n", bundle.files.len(), into.display()));
     }
     Ok(())
 }

@@ -13,7 +13,6 @@ use std::process::ExitCode;
 use clap::Parser;
 
 use args::{Arguments, Command};
-use common::Failure;
 
 /// Runs the program with the arguments it was called with.
 pub fn main() -> ExitCode {

@@ -4,7 +4,7 @@ use std::process::ExitCode;
 
 use super::args::Sweeping;
 use super::common::{
-    Failure, INTERRUPTED, called, code, control, finish, folder, load, program, say, style, with_draws, write,
+    Failure, INTERRUPTED, called, code, control, finish, folder, load, program, page, say, with_draws, write,
 };
 use crate::output::{bundle, json, text};
 use crate::review;
@@ -22,10 +22,10 @@ pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     if input.json {
         say(&json::review(&scenario, &review))?;
     } else if !input.quiet {
-        say(&text::review(&scenario, &review, called(input).as_deref(), &style()))?;
+        say(&text::review(&scenario, &review, &page(called(input).as_deref())))?;
     }
-    let files = bundle::of_review(&scenario, &review);
-    write(&files, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    let bundle = bundle::of_review(&scenario, &review);
+    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
     if control.cancelled() {
         return Ok(ExitCode::from(INTERRUPTED));
     }

@@ -4,9 +4,10 @@ use std::path::Path;
 use std::process::ExitCode;
 
 use super::args::Running;
-use super::common::{Failure, control, finish, folder, load, program, say, style, with_draws, write};
+use super::common::{Failure, called, control, finish, folder, load, page, program, say, with_draws, write};
 use crate::findings::Asked;
 use crate::instance::Which;
+use crate::output::instance::write_instance;
 use crate::output::{bundle, json, text};
 use crate::reader;
 use crate::review;
@@ -29,10 +30,12 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     if input.json {
         say(&document)?;
     } else if !input.quiet {
-        say(&text::run(&scenario, &asked, &report, &style()))?;
+        say(&text::run(&scenario, &asked, &report, &page(called(input).as_deref())))?;
     }
-    let files = bundle::of_run(&scenario, &asked, &report, document);
-    write(&files, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    let mut bundle = bundle::of_run(&scenario, &asked, &report, None);
+    bundle.add("run.json", document);
+    bundle.add("case.toml", write_instance(&report.instance, &scenario));
+    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
     let broken = report.facts.iter().any(|fact| fact.breaks_rule);
     Ok(ExitCode::from(u8::from(arguments.strict && broken)))
 }

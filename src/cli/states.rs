@@ -3,8 +3,8 @@
 use std::process::ExitCode;
 
 use super::args::Looking;
-use super::common::{Failure, control, finish, folder, load, say, style, write};
-use crate::output::bundle::File;
+use super::common::{Failure, called, control, finish, folder, load, page, say, write};
+use crate::output::bundle::Bundle;
 use crate::output::{json, tables, text};
 use crate::review;
 
@@ -21,9 +21,11 @@ pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
     if input.json {
         say(&document)?;
     } else if !input.quiet {
-        say(&text::states(&scenario, &report, &style()))?;
+        say(&text::states(&scenario, &report, &page(called(input).as_deref())))?;
     }
-    let files = [File::new("states.csv", tables::states(&scenario, &report)), File::new("states.json", document)];
-    write(&files, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    let mut bundle = Bundle::default();
+    bundle.add("states.csv", tables::states(&scenario, &report));
+    bundle.add("states.json", document);
+    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
     Ok(ExitCode::SUCCESS)
 }

@@ -4,7 +4,7 @@ use std::process::ExitCode;
 
 use super::args::Sweeping;
 use super::common::{
-    Failure, INTERRUPTED, called, code, control, finish, folder, load, program, say, style, with_draws, write,
+    Failure, INTERRUPTED, called, code, control, finish, folder, load, program, page, say, with_draws, write,
 };
 use crate::findings::Asked;
 use crate::output::{bundle, json, text};
@@ -27,10 +27,11 @@ pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     if input.json {
         say(&document)?;
     } else if !input.quiet {
-        say(&text::sweep(&scenario, &asked, &report, &verdict, called(input).as_deref(), &style()))?;
+        say(&text::sweep(&scenario, &asked, &report, &verdict, &page(called(input).as_deref())))?;
     }
-    let files = bundle::of_sweep(&scenario, &asked, &report, document);
-    write(&files, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    let mut bundle = bundle::of_sweep(&scenario, &asked, &report);
+    bundle.add("sweep.json", document);
+    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
     if control.cancelled() {
         return Ok(ExitCode::from(INTERRUPTED));
     }

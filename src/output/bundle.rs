@@ -1,1 +1,253 @@
-//! Later in this branch.
+//! The files of a command: made in memory first, then written together.
+
+use std::collections::BTreeSet;
+use std::fs;
+use std::io;
+use std::path::{Path, PathBuf};
+
+use crate::circuit::NetId;
+use crate::findings::{Asked, Subject};
+use crate::output::waves::{self, Nets, Picture};
+use crate::output::{charts, json, tables, words};
+use crate::review::{Review, RunReport};
+use crate::scenario::Scenario;
+use crate::time::Time;
+
+/// Most findings that get a picture of their failing case.
+pub const MOST_PICTURES: usize = 12;
+/// Runs of more windows than this are shown from the window before the finding to its end.
+const WHOLE_RUN: usize = 8;
+/// Longest part of a file name.
+const PART: usize = 40;
+
+/// A file that is ready to be written.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct File {
+    /// Its name, without any folder.
+    pub name: String,
+    /// What is in it.
+    pub bytes: Vec<u8>,
+}
+
+/// Files, and what a user should know of them.
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
+pub struct Bundle {
+    /// In a fixed order; names are unique, also where upper and lower case are one.
+    pub files: Vec<File>,
+    /// Whole sentences: what has no picture, which nets are left out.
+    pub notes: Vec<String>,
+}
+
+/// Why files could not be written.
+#[derive(Debug, thiserror::Error)]
+pub enum WriteError {
+    /// The folder cannot be made.
+    #[error("cannot make the folder {}: {source}; choose another with --out", folder.display())]
+    Folder {
+        /// The folder.
+        folder: PathBuf,
+        /// What the system says.
+        source: io::Error,
+    },
+    /// A file cannot be written.
+    #[error("cannot write {}: {source}", file.display())]
+    File {
+        /// The file.
+        file: PathBuf,
+        /// What the system says.
+        source: io::Error,
+    },
+}
+
+impl Bundle {
+    /// Adds a file of text.
+    pub fn add(&mut self, name: &str, text: String) {
+        self.files.push(File { name: name.to_string(), bytes: text.into_bytes() });
+    }
+
+    /// Sheets as `stem.svg`, `stem-2.svg`, …, and the table of all nets as `stem.csv`.
+    fn add_waves(&mut self, stem: &str, picture: &Picture<'_>, run: &RunReport) {
+        let sheets = waves::sheets(picture);
+        if let Some(left_out) = sheets.first().map(|sheet| sheet.left_out.len()).filter(|n| *n > 0) {
+            let nets = words::many(left_out as u64, "net");
+            self.notes.push(format!("{stem}.svg leaves out {nets}; {stem}.csv has all of them."));
+        }
+        for (i, sheet) in sheets.into_iter().enumerate() {
+            let number = if i == 0 { String::new() } else { format!("-{}", i + 1) };
+            self.add(&format!("{stem}{number}.svg"), sheet.svg);
+        }
+        self.add(&format!("{stem}.csv"), waves::csv(picture.scenario, &run.trace));
+    }
+}
+
+/// The files of one run: `waves-<case>.svg`, one a sheet, and `waves-<case>.csv`. `nets` chooses lanes.
+pub fn of_run(scenario: &Scenario, asked: &Asked, run: &RunReport, nets: Option<Vec<NetId>>) -> Bundle {
+    let stem = format!("waves-{}", safe(&run.which.words()));
+    let mut bundle = Bundle::default();
+    let nets = nets.map_or(Nets::All, Nets::These);
+    let picture = Picture { nets, ..Picture::of_run(scenario, asked, run, &stem) };
+    bundle.add_waves(&stem, &picture, run);
+    bundle
+}
+
+/// The files of a sweep: settling times, outcomes, findings, rules.
+pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::SweepReport) -> Bundle {
+    let mut bundle = Bundle::default();
+    bundle.add("settling.svg", charts::settling(scenario, report));
+    bundle.add("settling.csv", tables::settling(scenario, report));
+    bundle.add("outcomes.csv", tables::outcomes(scenario, report));
+    bundle.add("findings.csv", tables::findings(scenario, asked, report));
+    bundle.add("rules.csv", tables::rules(scenario, report));
+    bundle
+}
+
+/// The files of a review: `result.json`, `waves-typical`, a `waves-<kind>-<net or pattern>-<step>` for each of the worst
+/// findings whose failing case was run (at most [`MOST_PICTURES`]), the files of the sweep, `states.csv`.
+pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
+    let mut bundle = Bundle::default();
+    bundle.add("result.json", json::review(scenario, review));
+    if let Some(run) = &review.typical {
+        let picture = Picture::of_run(scenario, &review.asked, run, "waves-typical");
+        bundle.add_waves("waves-typical", &picture, run);
+    }
+    let mut stems = BTreeSet::from(["waves-typical".to_string()]);
+    let mut shown: Vec<&(usize, RunReport)> =
+        review.shown.iter().filter(|(finding, _)| *finding < review.sweep.findings.len()).collect();
+    shown.sort_by_key(|it| it.0);
+    shown.truncate(MOST_PICTURES);
+    for (finding, run) in &shown {
+        let subject = &review.sweep.findings[*finding].subject;
+        let stem = unique(stem(scenario, &review.asked, subject), &mut stems);
+        let picture = Picture {
+            nets: Nets::Telling,
+            range: around(subject, run),
+            ..Picture::of_run(scenario, &review.asked, run, &stem)
+        };
+        bundle.add_waves(&stem, &picture, run);
+    }
+    let all = review.sweep.findings.len();
+    if shown.len() < all {
+        let (some, all) = (words::count(shown.len() as u64), words::many(all as u64, "finding"));
+        bundle.notes.push(format!("{some} of {all} have a picture; run --delays sample:N draws any other (see findings.csv)."));
+    }
+    let sweep = of_sweep(scenario, &review.asked, &review.sweep);
+    bundle.files.extend(sweep.files);
+    bundle.add("states.csv", tables::states(scenario, &review.states));
+    bundle
+}
+
+/// The stretch of a long run in which a finding lies; `None` for a short run.
+fn around(subject: &Subject, run: &RunReport) -> Option<(Time, Time)> {
+    let windows = &run.trace.windows;
+    if windows.len() <= WHOLE_RUN {
+        return None;
+    }
+    let moment = subject.moment?;
+    let at = windows.iter().position(|window| window.moment == moment)?;
+    Some((windows[at.saturating_sub(1)].start, windows[at].stop))
+}
+
+/// `waves-<kind>-<net or pattern>-<step>`, of letters, digits and dashes.
+fn stem(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
+    let named = words::subject(scenario, asked, subject);
+    let mut parts = vec!["waves".to_string(), safe(named.kind)];
+    parts.extend(named.net.map(safe).or_else(|| named.pattern.as_deref().map(safe)));
+    parts.extend(named.step.map(safe));
+    parts.retain(|part| !part.is_empty());
+    parts.join("-")
+}
+
+/// Letters, digits and single dashes; everything else becomes a dash.
+fn safe(text: &str) -> String {
+    let mut name = String::new();
+    for letter in text.chars() {
+        if letter.is_ascii_alphanumeric() {
+            name.push(letter);
+        } else if !name.is_empty() && !name.ends_with('-') {
+            name.push('-');
+        }
+        if name.len() >= PART {
+            break;
+        }
+    }
+    name.trim_end_matches('-').to_string()
+}
+
+/// The stem, or the stem with a number: no two are equal, also where upper and lower case are one.
+fn unique(stem: String, taken: &mut BTreeSet<String>) -> String {
+    let mut name = stem.clone();
+    let mut number = 2;
+    while !taken.insert(name.to_lowercase()) {
+        name = format!("{stem}-{number}");
+        number += 1;
+    }
+    name
+}
+
+/// Writes files into a folder, which is made if need be. Each file is complete under its name or not there: it is written
+/// beside its place and then moved. Files of the same names are replaced, others left alone.
+///
+/// Errors: the folder or a file cannot be written; then no file has been moved into place, unless moving itself failed.
+pub fn write(folder: &Path, files: &[File]) -> Result<(), WriteError> {
+    fs::create_dir_all(folder).map_err(|source| WriteError::Folder { folder: folder.to_path_buf(), source })?;
+    let beside = |file: &File| folder.join(format!(".{}.part", file.name));
+    let done = files.iter().try_for_each(|file| {
+        fs::write(beside(file), &file.bytes).map_err(|source| WriteError::File { file: folder.join(&file.name), source })
+    });
+    let done = done.and_then(|()| {
+        files.iter().try_for_each(|file| {
+            let place = folder.join(&file.name);
+            fs::rename(beside(file), &place).map_err(|source| WriteError::File { file: place, source })
+        })
+    });
+    if done.is_err() {
+        for file in files {
+            // what is left over of an attempt that failed; the first error is the one to report
+            let _ = fs::remove_file(beside(file));
+        }
+    }
+    done
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn file(name: &str, text: &str) -> File {
+        File { name: name.into(), bytes: text.into() }
+    }
+
+    #[test]
+    fn names_are_safe_and_unique() {
+        assert_eq!(safe("both let go, then <call> \"x\""), "both-let-go-then-call-x");
+        assert_eq!(safe("../../etc"), "etc");
+        assert_eq!(safe("ärger[3]"), "rger-3");
+        assert_eq!(safe(&"x_".repeat(100)).len(), 39);
+        let mut taken = BTreeSet::new();
+        let names: Vec<String> = ["a", "A", "a"].map(|stem| unique(stem.into(), &mut taken)).into();
+        assert_eq!(names, ["a", "A-2", "a-3"]);
+    }
+
+    #[test]
+    fn files_are_written_and_replaced() {
+        let folder = tempfile::tempdir().unwrap();
+        let inner = folder.path().join("new/deep");
+        write(&inner, &[file("a.txt", "old"), file("b.txt", "b")]).unwrap();
+        write(&inner, &[file("a.txt", "new")]).unwrap();
+        assert_eq!(fs::read_to_string(inner.join("a.txt")).unwrap(), "new");
+        assert_eq!(fs::read_dir(&inner).unwrap().count(), 2, "nothing is left over");
+    }
+
+    #[test]
+    fn an_error_names_the_path_and_leaves_nothing() {
+        let folder = tempfile::tempdir().unwrap();
+        fs::write(folder.path().join("taken"), "a file").unwrap();
+        let error = write(&folder.path().join("taken"), &[file("a.txt", "")]).unwrap_err();
+        assert!(error.to_string().contains("taken") && error.to_string().contains("--out"), "{error}");
+
+        let inner = folder.path().join("inner");
+        let error = write(&inner, &[file("a.txt", "a"), file("no/such/folder.txt", "b")]).unwrap_err();
+        assert!(error.to_string().contains("folder.txt"), "{error}");
+        assert_eq!(fs::read_dir(&inner).unwrap().count(), 0, "neither the first file nor a part of it");
+    }
+}

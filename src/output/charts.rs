@@ -1,1 +1,257 @@
-//! Later in this branch.
+//! Charts of a sweep. No chart without its table beside it.
+
+use plotters::coord::Shift;
+use plotters::prelude::*;
+use plotters::style::text_anchor::{HPos, Pos, VPos};
+
+use crate::output::ink;
+use crate::output::measure::{cut_end, width};
+use crate::output::words;
+use crate::scenario::Scenario;
+use crate::sweep::{Settling, SweepReport, WindowReport};
+use crate::time::{Span, Unit};
+
+/// Most panels of one chart.
+pub const MOST_PANELS: usize = 12;
+/// Size of a panel, pixels.
+const PANEL: (u32, u32) = (500, 230);
+/// Height of title and notes, pixels.
+const HEAD: u32 = 34;
+/// Font size that the backend turns into the small size of pictures: it divides by 1.24.
+const SMALL: f64 = ink::SMALL * 1.24;
+
+type Area<'a> = DrawingArea<SVGBackend<'a>, Shift>;
+type Drawn = Result<(), DrawingAreaErrorKind<std::io::Error>>;
+
+/// Settling-time histograms, one panel a step, at most [`MOST_PANELS`]; the caption names what is left out. Lines mark
+/// median, 99th percentile and the limit from the rules. [`tables::settling`](crate::output::tables::settling) has the
+/// numbers.
+pub fn settling(scenario: &Scenario, report: &SweepReport) -> String {
+    let panels: Vec<(&WindowReport, &Settling)> = report
+        .windows
+        .iter()
+        .filter_map(|window| window.settling.as_ref().map(|settling| (window, settling)))
+        .filter(|(_, settling)| !settling.bars.is_empty())
+        .collect();
+    let shown = &panels[..panels.len().min(MOST_PANELS)];
+    let rows = shown.len().div_ceil(2) as u32;
+    let size = (2 * PANEL.0, HEAD + rows.max(1) * PANEL.1 + if panels.len() > shown.len() { 24 } else { 4 });
+    let mut svg = String::new();
+    {
+        let root = SVGBackend::with_string(&mut svg, size).into_drawing_area();
+        draw(&root, scenario, report, shown, &panels[shown.len()..]).expect("drawing into memory");
+    }
+    let alternative = alternative(scenario, shown);
+    svg.replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
+}
+
+fn draw(
+    root: &Area<'_>,
+    scenario: &Scenario,
+    report: &SweepReport,
+    shown: &[(&WindowReport, &Settling)],
+    left_out: &[(&WindowReport, &Settling)],
+) -> Drawn {
+    root.fill(&WHITE)?;
+    let draws = words::count(report.samples);
+    let title = words::clean(&format!("{}: settling time (Monte Carlo, {draws} draws)", scenario.title));
+    let title = cut_end(&title, 14.0, 2.0 * f64::from(PANEL.0) - 24.0).unwrap_or(title);
+    let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
+    root.draw(&Text::new(title, (12, 8), bold))?;
+    for (i, (window, settling)) in shown.iter().enumerate() {
+        let (column, row) = (i as u32 % 2, i as u32 / 2);
+        let corner = ((column * PANEL.0) as i32, (HEAD + row * PANEL.1) as i32);
+        let area = root.clone().shrink(corner, PANEL);
+        panel(&area, scenario, window, settling)?;
+    }
+    if shown.is_empty() {
+        root.draw(&Text::new("No window settled.", (12, HEAD as i32), small()))?;
+    }
+    if !left_out.is_empty() {
+        let steps: Vec<&str> = left_out.iter().filter_map(|it| words::step(scenario, Some(it.0.moment))).collect();
+        let note = format!("Left out, but in settling.csv: {}", steps.join(", "));
+        let note = cut_end(&note, ink::SMALL, 2.0 * f64::from(PANEL.0) - 24.0).unwrap_or(note);
+        let y = HEAD + (shown.len().div_ceil(2) as u32) * PANEL.1 + 4;
+        root.draw(&Text::new(note, (12, y as i32), small()))?;
+    }
+    root.present()
+}
+
+/// One histogram.
+fn panel(area: &Area<'_>, scenario: &Scenario, window: &WindowReport, settling: &Settling) -> Drawn {
+    let marks = marks(scenario, window, settling);
+    let longest = marks.iter().map(|mark| mark.at).chain(settling.bars.iter().map(|bar| bar.1)).max();
+    let unit = fitting(longest.unwrap_or_default(), scenario.unit);
+    let value = |span: Span| span.fs() as f64 / unit.femtoseconds() as f64;
+    let bars = &settling.bars;
+    let (first, last) = (value(bars[0].0), value(bars[bars.len() - 1].1));
+    let low = marks.iter().map(|mark| value(mark.at)).fold(first, f64::min);
+    let high = marks.iter().map(|mark| value(mark.at)).fold(last, f64::max);
+    let margin = ((high - low) * 0.04).max(high * 1e-3).max(1e-9);
+    let range = (low - margin).max(0.0)..high + margin;
+    let tallest = bars.iter().map(|bar| bar.2).max().unwrap_or(1);
+
+    let label = words::clean(words::step(scenario, Some(window.moment)).unwrap_or_default());
+    let caption = cut_end(&label, ink::BODY, f64::from(PANEL.0) - 60.0).unwrap_or(label);
+    area.draw(&Text::new(caption, (70, 0), ("sans-serif", ink::BODY * 1.24).into_font().color(&rgb(ink::INK))))?;
+    let mut chart = ChartBuilder::on(area)
+        .margin_top(18 + 14 * marks.len() as u32)
+        .margin_right(16)
+        .margin_left(10)
+        .set_label_area_size(LabelAreaPosition::Left, 60)
+        .set_label_area_size(LabelAreaPosition::Bottom, 42)
+        .build_cartesian_2d(range, 0.0..tallest as f64 * 1.05)?;
+    chart
+        .configure_mesh()
+        .disable_x_mesh()
+        .disable_y_mesh()
+        .axis_style(rgb(ink::QUIET))
+        .label_style(small())
+        .axis_desc_style(small())
+        .x_labels(7)
+        .y_labels(4)
+        .x_label_formatter(&|x| words::three(*x))
+        .y_label_formatter(&|y| words::count(*y as u64))
+        .x_desc(format!("settling time [{unit}]"))
+        .y_desc("draws")
+        .draw()?;
+    chart.draw_series(bars.iter().map(|(from, below, count)| {
+        let (from, below) = (value(*from), value(*below));
+        Rectangle::new([(from, 0.0), (below, *count as f64)], rgb(ink::BAND).filled())
+    }))?;
+    chart.draw_series(bars.iter().map(|(from, below, count)| {
+        let (from, below) = (value(*from), value(*below));
+        Rectangle::new([(from, 0.0), (below, *count as f64)], rgb(ink::INK).stroke_width(1))
+    }))?;
+    let origin = area.get_base_pixel();
+    let place = |at: Span| chart.backend_coord(&(value(at), 0.0));
+    let bottom = place(Span::ZERO).1 - origin.1;
+    let boxes: Vec<(f64, f64)> = marks
+        .iter()
+        .map(|mark| (f64::from(place(mark.at).0 - origin.0), width(&mark.label, ink::SMALL)))
+        .collect();
+    for (mark, spot) in marks.iter().zip(spots(&boxes, f64::from(PANEL.0))) {
+        let x = place(mark.at).0 - origin.0;
+        let y = 20 + 14 * spot.row as i32;
+        area.draw(&PathElement::new(vec![(x, y + 2), (x, bottom)], rgb(mark.ink).stroke_width(2)))?;
+        let (at, side) = if spot.leftwards { (x - 5, HPos::Right) } else { (x + 5, HPos::Left) };
+        let text = ("sans-serif", SMALL).into_font().color(&rgb(mark.ink)).pos(Pos::new(side, VPos::Center));
+        area.draw(&Text::new(mark.label.clone(), (at, y + 5), text))?;
+    }
+    Ok(())
+}
+
+/// Where a label stands: its row, 0 the highest, and on which side of its line.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+struct Spot {
+    row: usize,
+    leftwards: bool,
+}
+
+/// Rows and sides of the labels of a few lines (pixel, width of the label) such that as few lines as possible pass through
+/// a label. A line begins in the row of its own label and goes down.
+fn spots(lines: &[(f64, f64)], room: f64) -> Vec<Spot> {
+    let many = lines.len();
+    let mut best: (usize, Vec<Spot>) = (usize::MAX, vec![Spot::default(); many]);
+    let ways = many.pow(many as u32) << many;
+    for way in 0..ways {
+        let mut rest = way >> many;
+        let mut tried = Vec::with_capacity(many);
+        for i in 0..many {
+            tried.push(Spot { row: rest % many, leftwards: way >> i & 1 == 1 });
+            rest /= many;
+        }
+        if tried.iter().enumerate().any(|(i, spot)| tried[..i].iter().any(|other| other.row == spot.row)) {
+            continue;
+        }
+        let mut cost = 0;
+        for (spot, (x, wide)) in tried.iter().zip(lines) {
+            let (from, to) = if spot.leftwards { (x - 5.0 - wide, x - 4.0) } else { (x + 4.0, x + 5.0 + wide) };
+            let outside = from < 4.0 || to > room - 4.0;
+            let passing = tried.iter().zip(lines).filter(|(it, line)| it.row < spot.row && from < line.0 && line.0 < to);
+            cost += 4 * passing.count() + if outside { 20 } else { usize::from(spot.leftwards) };
+        }
+        if cost < best.0 {
+            best = (cost, tried);
+        }
+    }
+    best.1
+}
+
+/// A labelled vertical line.
+struct Mark {
+    at: Span,
+    label: String,
+    ink: &'static str,
+}
+
+fn marks(scenario: &Scenario, window: &WindowReport, settling: &Settling) -> Vec<Mark> {
+    let at_least = |yes: bool| if yes { "≥ " } else { "" };
+    let mut marks = Vec::new();
+    if let Some(limit) = limit(scenario, window.moment) {
+        marks.push(Mark { at: limit, label: format!("limit {}", limit.rounded()), ink: ink::FINDING });
+    }
+    let p99 = format!("99th percentile {}{}", at_least(settling.p99_at_least), settling.p99.rounded());
+    marks.push(Mark { at: settling.p99, label: p99, ink: ink::INK });
+    let median = format!("median {}{}", at_least(settling.median_at_least), settling.median.rounded());
+    marks.push(Mark { at: settling.median, label: median, ink: ink::INK });
+    marks
+}
+
+/// The settling limit of a moment, if the rules have one.
+fn limit(scenario: &Scenario, moment: u32) -> Option<Span> {
+    let moment = scenario.stimulus.moments.get(moment as usize)?;
+    let own = scenario.stimulus.step_of(moment).and_then(|step| step.settle_within);
+    own.or(scenario.rules.settle_within)
+}
+
+/// The unit in which an axis up to `longest` has handy numbers.
+fn fitting(longest: Span, unit: Unit) -> Unit {
+    let one = unit.femtoseconds();
+    if (one..one.saturating_mul(100_000)).contains(&longest.fs()) {
+        return unit;
+    }
+    Unit::ALL.into_iter().rev().find(|it| longest.fs() >= it.femtoseconds()).unwrap_or(Unit::Fs)
+}
+
+fn small() -> TextStyle<'static> {
+    ("sans-serif", SMALL).into_font().color(&rgb(ink::INK))
+}
+
+/// An ink as the backend takes it.
+fn rgb(ink: &str) -> RGBColor {
+    let part = |at: usize| ink.get(at..at + 2).and_then(|hex| u8::from_str_radix(hex, 16).ok()).unwrap_or(0);
+    RGBColor(part(1), part(3), part(5))
+}
+
+/// The chart in words, fit for an attribute.
+fn alternative(scenario: &Scenario, shown: &[(&WindowReport, &Settling)]) -> String {
+    let each = shown.iter().map(|(window, settling)| {
+        let step = words::step(scenario, Some(window.moment)).unwrap_or_default();
+        format!("{step}: median {}, 99th percentile {}", settling.median.rounded(), settling.p99.rounded())
+    });
+    let text = format!("Settling time. {}.", each.collect::<Vec<_>>().join("; "));
+    let markup = maud::html! { (words::clean(&text)) };
+    markup.into_string()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn no_line_passes_a_label() {
+        // two lines close together at the right edge, one far left
+        let spots = spots(&[(440.0, 60.0), (470.0, 130.0), (200.0, 90.0)], 500.0);
+        assert!(!spots[2].leftwards, "{spots:?}");
+        assert!(spots[1].leftwards && spots[0].leftwards, "no room at the right: {spots:?}");
+        assert!(spots[1].row < spots[0].row, "the label of the right line stands above the left line: {spots:?}");
+    }
+
+    #[test]
+    fn the_unit_keeps_numbers_short() {
+        assert_eq!(fitting(Span::from_fs(20_000_000), Unit::Ns), Unit::Ns);
+        assert_eq!(fitting(Span::from_fs(20), Unit::Ns), Unit::Fs);
+        assert_eq!(fitting(Span::from_fs(u64::MAX / 4), Unit::Ns), Unit::S);
+    }
+}

@@ -4,6 +4,8 @@
 pub(super) const INK: &str = "#1d2430";
 /// Grid, axes, rules between groups.
 pub(super) const QUIET: &str = "#8a93a0";
+/// Filled areas: bars, and bands in which an edge may come.
+pub(super) const BAND: &str = "#d9dee6";
 /// A finding: also a bracket below the lane and a label.
 pub(super) const FINDING: &str = "#b3420f";
 /// Rest: also a triangle on the time axis.

@@ -4,6 +4,7 @@
 //! [`Scenario`](crate::scenario::Scenario) for the names, and gives back text or bytes; the same input gives the same
 //! bytes on every machine. Only [`bundle::write`] touches a disk, and nothing prints.
 
+mod assumptions;
 pub mod bundle;
 pub mod charts;
 mod ink;

@@ -3,7 +3,7 @@
 use crate::circuit::NetId;
 use crate::findings::{Asked, Fact, Kind, Subject};
 use crate::instance::Which;
-use crate::scenario::Scenario;
+use crate::scenario::{MomentKind, Scenario};
 use crate::sweep::{Tie, Worst};
 use crate::time::Span;
 
@@ -11,6 +11,12 @@ use crate::time::Span;
 pub(super) fn step(scenario: &Scenario, moment: Option<u32>) -> Option<&str> {
     let moment = scenario.stimulus.moments.get(moment? as usize)?;
     Some(&moment.label)
+}
+
+/// How many steps a scenario has: clock edges are steps, power-up is none.
+pub(super) fn steps(scenario: &Scenario) -> String {
+    let moments = &scenario.stimulus.moments;
+    many(moments.iter().filter(|moment| moment.kind != MomentKind::PowerUp).count() as u64, "step")
 }
 
 /// The name of a net.
@@ -21,6 +27,14 @@ pub(super) fn net(scenario: &Scenario, net: NetId) -> &str {
 /// The names of some nets.
 pub(super) fn nets<'a>(scenario: &'a Scenario, nets: &[NetId]) -> Vec<&'a str> {
     nets.iter().map(|id| net(scenario, *id)).collect()
+}
+
+/// Some of the names, and how many more there are.
+pub(super) fn some_names(names: &[&str], most: usize) -> String {
+    if names.len() <= most {
+        return names.join(", ");
+    }
+    format!("{} and {} more", names[..most].join(", "), count((names.len() - most) as u64))
 }
 
 /// What a finding or fact is about, in words.
@@ -65,6 +79,16 @@ pub(super) const fn tie(tie: Tie) -> &'static str {
     }
 }
 
+/// Letters that XML cannot hold become the replacement sign; line breaks become spaces.
+pub(super) fn clean(text: &str) -> String {
+    let fit = |letter: char| match letter {
+        '\n' | '\r' | '\t' => ' ',
+        letter if letter.is_control() || matches!(letter, '\u{fffe}' | '\u{ffff}') => '\u{fffd}',
+        letter => letter,
+    };
+    text.chars().map(fit).collect()
+}
+
 /// Which delays a run took, as titles say it: `typical delays`, `sample 8123`.
 pub(super) fn delays(which: &Which) -> String {
     match which {
@@ -90,7 +114,10 @@ pub(super) fn three(number: f64) -> String {
 
 /// A share in percent with three significant digits: `1.23 %`.
 pub(super) fn percent(share: f64) -> String {
-    format!("{} %", three(share * 100.0))
+    match three(share * 100.0).as_str() {
+        "100" if share < 1.0 => "above 99.9 %".to_string(),
+        digits => format!("{digits} %"),
+    }
 }
 
 /// A count with digits in groups of three: `10,000`.
@@ -122,6 +149,8 @@ mod tests {
         assert_eq!(three(0.000_012_345), "1.23e-5");
         assert_eq!(percent(0.0), "0 %");
         assert_eq!(percent(0.012_345), "1.23 %");
+        assert_eq!(percent(1.0), "100 %");
+        assert_eq!(percent(0.999_9), "above 99.9 %", "not all is not 100 %");
         assert_eq!(count(1_234_567), "1,234,567");
         assert_eq!(count(999), "999");
         assert_eq!(many(1, "gate"), "1 gate");

@@ -129,6 +129,7 @@ impl Diagnostics {
         marks: &[(AnnotationKind, &Range<usize>, Option<&'a str>)],
     ) -> Group<'a> {
         let mut window = lines.range(*shown.start()).start..lines.range(*shown.end()).end;
+        window.end -= usize::from(self.text[window.clone()].ends_with('\r'));
         let long = shown.start() == shown.end() && window.len() > LONGEST_LINE;
         if long {
             let mut start = marks[0].1.start.saturating_sub(LONGEST_LINE / 4).max(window.start);

@@ -17,7 +17,7 @@ pub enum ReadError {
     File(#[from] FileError),
     /// Its text has faults.
     #[error(transparent)]
-    Text(#[from] Diagnostics),
+    Faults(#[from] Diagnostics),
 }
 
 /// Why a file could not be read as text.

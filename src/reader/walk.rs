@@ -21,7 +21,8 @@ pub(super) struct Walk {
 impl Walk {
     /// Mark 0 is the start of the text.
     pub fn new() -> Walk {
-        Walk { spans: vec![0..0], faults: Faults::default(), comparisons: Comparisons::default() }
+        let start = 0..0;
+        Walk { spans: vec![start], faults: Faults::default(), comparisons: Comparisons::default() }
     }
 
     /// A new mark for a place.

@@ -125,16 +125,19 @@ impl Diagram {
     }
 }
 
+/// A level and the value of its variable.
+type Step = (u32, bool);
+
 /// See [`Diagram::cubes`].
 pub(super) struct Cubes<'a> {
     diagram: &'a Diagram,
-    /// functions to look at, with the length of the path to their parent and the last step of it
-    open: Vec<(Edge, usize, Option<(u32, bool)>)>,
-    path: Vec<(u32, bool)>,
+    /// functions to look at, with the length of the path above them and the step from there
+    open: Vec<(Edge, usize, Option<Step>)>,
+    path: Vec<Step>,
 }
 
 impl Iterator for Cubes<'_> {
-    type Item = Vec<(u32, bool)>;
+    type Item = Vec<Step>;
 
     fn next(&mut self) -> Option<Self::Item> {
         while let Some((edge, depth, step)) = self.open.pop() {

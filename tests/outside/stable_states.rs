@@ -107,13 +107,13 @@ fn c17_has_its_truth_table() {
         let mut nets: Vec<NetId> = circuit.inputs().collect();
         nets.push(circuit.net(name).unwrap());
         let shown = set.project(&nets).unwrap();
-        let ones: u64 = shown.rows(1000).rows.iter().filter(|row| row[5] == Some(true)).map(size).sum();
+        let ones: u64 = shown.rows(1000).rows.iter().filter(|row| row[5] == Some(true)).map(|row| size(row)).sum();
         assert_eq!(ones, 18, "{name}");
         assert_eq!(shown.count(), 32u8.into());
     }
 }
 
-fn size(row: &Vec<Option<bool>>) -> u64 {
+fn size(row: &[Option<bool>]) -> u64 {
     1 << row.iter().filter(|value| value.is_none()).count()
 }
 

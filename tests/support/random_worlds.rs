@@ -61,11 +61,14 @@ impl Lengths {
 
 fn function(rng: &mut ChaCha8Rng, nets: &[String]) -> (Function, Vec<String>) {
     let choice = rng.random_range(0..12);
+    // functions of more than six nets have other forms in the engine
+    let wide = rng.random_bool(0.15);
     if choice >= 10 {
-        // an expression over up to four nets, some of them twice
-        let nets: Vec<&String> = (0..rng.random_range(1..=4)).map(|_| nets.choose(rng).unwrap()).collect();
+        // an expression over some of the nets, some of them twice
+        let (nets_in_use, terms) = if wide { (9..=14, 10..=20) } else { (1..=4, 1..=6) };
+        let nets: Vec<&String> = (0..rng.random_range(nets_in_use)).map(|_| nets.choose(rng).unwrap()).collect();
         let mut text = String::new();
-        for i in 0..rng.random_range(1..=6) {
+        for i in 0..rng.random_range(terms) {
             if i > 0 {
                 text.push_str([" & ", " | ", " ^ "].choose(rng).unwrap());
             }
@@ -80,7 +83,8 @@ fn function(rng: &mut ChaCha8Rng, nets: &[String]) -> (Function, Vec<String>) {
     let pins = match function {
         Function::Buf | Function::Not => 1,
         Function::Mux => 3,
-        Function::Majority => [3, 5].choose(rng).copied().unwrap(),
+        Function::Majority => rng.random_range(if wide { 4..=7 } else { 1..=2 }) * 2 + 1,
+        _ if wide => rng.random_range(8..=14),
         _ => rng.random_range(2..=4),
     };
     (function, (0..pins).map(|_| nets.choose(rng).unwrap().clone()).collect())

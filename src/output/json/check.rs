@@ -3,7 +3,7 @@
 use serde::Serialize;
 
 use super::parts::{Object, OneLine};
-use crate::output::text::assumptions;
+use crate::output::assumptions::assumptions;
 use crate::output::words;
 use crate::scenario::Scenario;
 
@@ -43,7 +43,7 @@ pub fn check(scenario: &Scenario) -> String {
         moments: scenario.stimulus.moments.len(),
         feedback: OneLine(words::nets(scenario, circuit.feedback())),
         notes: &scenario.notes,
-        assumptions: assumptions(scenario),
+        assumptions: assumptions(scenario, usize::MAX),
         not_analysed: &scenario.not_analysed,
         can_run: !scenario.cannot_run,
     })

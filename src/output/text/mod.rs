@@ -1,6 +1,65 @@
-//! placeholder
-use crate::scenario::Scenario;
-/// Assumptions.
-pub fn assumptions(_s: &Scenario) -> Vec<String> {
-    Vec::new()
+//! What a terminal shows: one text a command, 60 to 100 columns wide, about one screen long.
+//!
+//! Lists are shortened, and say by how much and which file has the rest. Colour, where the caller wants it, is only added
+//! to words that say the same. A text about a sweep never says more than "no failure found".
+
+mod check;
+mod findings;
+mod notes;
+mod paper;
+mod review;
+mod rules;
+mod run;
+mod states;
+mod steps;
+mod sweep;
+
+pub use check::check;
+pub use paper::Style;
+pub use review::review;
+pub use run::run;
+pub use states::states;
+pub use sweep::sweep;
+
+/// How and for whom a text is written.
+#[derive(Clone, Copy, Debug)]
+pub struct Page<'a> {
+    /// With or without colour.
+    pub style: Style,
+    /// Columns of the terminal; texts take 60 to 100.
+    pub width: usize,
+    /// The scenario as the user named it, for commands that replay a case; `None` for the demonstration.
+    pub scenario: Option<&'a str>,
+}
+
+impl Default for Page<'_> {
+    fn default() -> Self {
+        Page { style: Style::Plain, width: 100, scenario: None }
+    }
+}
+
+impl Page<'_> {
+    fn paper(&self) -> paper::Paper {
+        paper::Paper::new(self.style, self.width)
+    }
+
+    /// The command that replays a sample.
+    fn replay(&self, sample: u64) -> String {
+        let scenario = match self.scenario {
+            Some(name) if name.chars().any(|letter| letter.is_whitespace() || matches!(letter, '\'' | '"' | '&' | '$')) => {
+                format!(" '{}'", name.replace('\'', "'\\''"))
+            }
+            Some(name) => format!(" {name}"),
+            None => String::new(),
+        };
+        format!("stillgate run{scenario} --delays sample:{sample}")
+    }
+}
+
+/// The list was cut: how much more there is, and where.
+fn more(paper: &mut paper::Paper, left: usize, place: &str) {
+    if left > 0 {
+        let left = crate::output::words::count(left as u64);
+        paper.say(2, paper::Tone::Plain, &format!("... and {left} more (see {place})"));
+    }
 }

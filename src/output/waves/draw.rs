@@ -6,6 +6,7 @@ use super::Picture;
 use super::flags::OFFSET;
 use super::frame::{Bracket, Frame, LINE, Lane, MARGIN, SWING, WIDTH};
 use super::lane::{Line, line, number};
+use crate::output::words::clean;
 use crate::output::ink::{BODY, FINDING, INK, QUIET, REST, SECOND, SMALL};
 
 /// White behind text that lines pass through.
@@ -48,16 +49,6 @@ pub(super) fn svg(picture: &Picture<'_>, frame: &Frame) -> String {
         "\n"
     };
     markup.into_string()
-}
-
-/// Letters that XML cannot hold become the replacement sign; line breaks become spaces.
-fn clean(text: &str) -> String {
-    let fit = |letter: char| match letter {
-        '\n' | '\r' | '\t' => ' ',
-        letter if letter.is_control() || matches!(letter, '\u{fffe}' | '\u{ffff}') => '\u{fffd}',
-        letter => letter,
-    };
-    text.chars().map(fit).collect()
 }
 
 fn hatch(id: &str) -> Markup {
@@ -176,7 +167,7 @@ fn draw_bracket(bracket: &Bracket) -> Markup {
             @if bracket.breaks_rule {
                 path d=(data) fill="none" stroke=(ink) stroke-width="1.6" {}
             } @else {
-                path d=(data) fill="none" stroke=(ink) stroke-width="1" stroke-dasharray="2 2" {}
+                path d=(data) fill="none" stroke=(ink) stroke-width="1.2" stroke-dasharray="3 1.5" {}
             }
             @if let Some((text, x, y)) = &bracket.label {
                 text x=(number(*x)) y=(number(*y)) fill=(ink) style=(HALO) { (clean(text)) }
@@ -202,7 +193,7 @@ fn axis(frame: &Frame) -> Markup {
         "\n" text x=(number(frame.left - 8.0)) y=(number(y + 17.0)) text-anchor="end" {
             (format!("time [{}]", frame.axis.unit))
         }
-        "\n" text x=(number(frame.right + 8.0)) y=(number(frame.lanes_top - 3.0)) { (frame.values_caption) }
+        "\n" text x=(number(frame.right + 8.0)) y=(number(y + 17.0)) { (frame.values_caption) }
     }
 }
 

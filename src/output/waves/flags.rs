@@ -7,7 +7,7 @@ use crate::output::measure::{Rows, cut_end, width};
 /// Rows of full labels, each of two lines.
 const ROWS: usize = 3;
 /// From the line to its label.
-pub(super) const OFFSET: f64 = 4.0;
+pub(super) const OFFSET: f64 = 3.0;
 /// From a label to the next line.
 const GAP: f64 = 8.0;
 
@@ -85,7 +85,7 @@ fn by_number(steps: &[(f64, &Step)], named: &[usize], right: f64, flags: &mut [F
             Some(cut) if cut.chars().count() > number.len() + 4 => cut,
             Some(_) => number,
         };
-        if room.place(x, x + OFFSET + width(&text, SMALL) + 2.0).is_some() {
+        if room.place(x, x + OFFSET + width(&text, SMALL) + 1.0).is_some() {
             flags[*i].label = text;
         }
     }

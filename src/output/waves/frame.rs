@@ -167,7 +167,7 @@ impl Frame {
             let (top, bottom) = (y + 5.0, y + 5.0 + SWING);
             let own: Vec<&Spot> = spots.iter().filter(|spot| spot.net == Some(*net)).collect();
             let (brackets, rows) = brackets(&own, &axis, left, bottom + 4.0, &mut missing);
-            y += PITCH + rows as f64 * LINE + if rows > 0 { 3.0 } else { 0.0 };
+            y += PITCH + if rows > 0 { rows as f64 * LINE - 2.0 } else { 0.0 };
             let name = cut_middle(&full_name, BODY, left - 8.0 - MARGIN).unwrap_or_else(|| full_name.clone());
             lanes.push(Lane { net: *net, name, full_name, top, bottom, waves, value, is_open, brackets });
         }
@@ -326,13 +326,14 @@ fn remarks(picture: &Picture<'_>, seen: &Seen<'_>) -> Vec<String> {
         let (first, last) = (words::net(scenario, *first), words::net(scenario, *last));
         notes.push(format!("Sheet {} of {many}: {first} to {last}.", number + 1));
     }
+    if let Some((from, to)) = picture.range {
+        let time = |at: Time| at.from_start().decimal(scenario.unit);
+        let (from, to, all) = (time(from), time(to), time(whole_run(picture)));
+        notes.push(format!("A part of the run: from {from} to {to} of {all} {}.", scenario.unit));
+    }
     if !seen.left_out.is_empty() {
-        let many = seen.left_out.len();
-        let mut names = words::nets(scenario, &seen.left_out[..many.min(NAMED)]).join(", ");
-        if many > NAMED {
-            names += &format!(" and {} more", words::count((many - NAMED) as u64));
-        }
-        notes.push(format!("Left out: {} ({names}).", words::many(many as u64, "net")));
+        let names = words::some_names(&words::nets(scenario, seen.left_out), NAMED);
+        notes.push(format!("Left out: {} ({names}).", words::many(seen.left_out.len() as u64, "net")));
         notes.push("Ask for nets by name with run --nets A,B,…; the CSV beside this picture has all of them.".into());
     }
     if seen.solid {

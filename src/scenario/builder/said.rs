@@ -255,6 +255,9 @@ pub struct NewBounce {
     pub pulses: Said<(u64, u64)>,
 }
 
+/// A net with the least and the greatest number of its transitions.
+pub type NewEdges = (Said<String>, Said<(u64, u64)>);
+
 /// A step as it was said. Build it up by its methods, or fill its fields to give marks.
 #[derive(Clone, Debug, Default)]
 pub struct NewStep {
@@ -271,7 +274,7 @@ pub struct NewStep {
     /// Where nets must rest after it: one of these partial states.
     pub expect: Option<Said<Vec<Said<NewState>>>>,
     /// Least and greatest number of transitions of nets in its window.
-    pub edges: Vec<(Said<String>, Said<(u64, u64)>)>,
+    pub edges: Vec<NewEdges>,
     /// Settling bound of this step.
     pub settle_within: Option<Said<Amount>>,
     /// What is said of oscillation after this step.

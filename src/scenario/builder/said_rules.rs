@@ -15,7 +15,7 @@ pub struct NewRules {
     /// Shortest highs and lows.
     pub min_pulse: Vec<NewMinPulse>,
     /// Nets that must not glitch, each with the width below which a pulse is tolerated. Default: the outputs.
-    pub glitch_free: Option<Vec<(Said<String>, Option<Said<Amount>>)>>,
+    pub glitch_free: Option<Vec<NewGlitchFree>>,
     /// Bound on the settling time of every watched net after every step.
     pub settle_within: Option<Said<Amount>>,
     /// May outcomes of one step differ?
@@ -29,6 +29,9 @@ pub struct NewRules {
     /// Does the user accept what was not judged?
     pub accept_not_judged: bool,
 }
+
+/// A net that must not glitch, and the width below which a pulse is tolerated.
+pub type NewGlitchFree = (Said<String>, Option<Said<Amount>>);
 
 /// Where a swallowed pulse breaks a rule, as it was said.
 #[derive(Clone, Debug)]

@@ -1,0 +1,301 @@
+//! Lines of text of limited width: wrapping, aligned columns, and colour where it is wanted.
+
+/// How a terminal shows text.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Style {
+    /// Plain text, for files and pipes.
+    #[default]
+    Plain,
+    /// With ANSI escapes for bold and colour. Words say everything that colour says.
+    Ansi,
+}
+
+/// What a line is like.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub(super) enum Tone {
+    #[default]
+    Plain,
+    Strong,
+    Bad,
+    Unsure,
+    Quiet,
+}
+
+impl Tone {
+    /// The escape that begins it; nothing for plain.
+    fn escape(self) -> &'static str {
+        match self {
+            Tone::Plain => "",
+            Tone::Strong => "\x1b[1m",
+            Tone::Bad => "\x1b[31m",
+            Tone::Unsure => "\x1b[33m",
+            Tone::Quiet => "\x1b[2m",
+        }
+    }
+}
+
+/// Widest and narrowest page, in columns.
+const WIDTHS: (usize, usize) = (60, 100);
+/// Between two columns of a table.
+const GAP: usize = 2;
+/// A column that may be cut is cut to this before others are dropped.
+const FIRST_CUT: usize = 18;
+/// And to this once nothing can be dropped.
+const LAST_CUT: usize = 6;
+
+/// A page that is being written.
+pub(super) struct Paper {
+    style: Style,
+    width: usize,
+    text: String,
+}
+
+impl Paper {
+    pub fn new(style: Style, width: usize) -> Paper {
+        Paper { style, width: width.clamp(WIDTHS.0, WIDTHS.1), text: String::new() }
+    }
+
+    pub fn finish(self) -> String {
+        self.text
+    }
+
+    /// An empty line, unless the page is empty or has one there.
+    pub fn gap(&mut self) {
+        if !self.text.is_empty() && !self.text.ends_with("\n\n") {
+            self.text.push('\n');
+        }
+    }
+
+    /// A heading after a gap.
+    pub fn heading(&mut self, text: &str) {
+        self.gap();
+        self.say(0, Tone::Strong, text);
+    }
+
+    /// A paragraph, wrapped at spaces, every line indented.
+    pub fn say(&mut self, indent: usize, tone: Tone, text: &str) {
+        self.hang(indent, indent, tone, text);
+    }
+
+    /// An entry of a list: a dash, and further lines below its text.
+    pub fn item(&mut self, tone: Tone, text: &str) {
+        self.hang(2, 4, tone, &format!("- {text}"));
+    }
+
+    /// A paragraph whose first line has an indent of its own.
+    pub fn hang(&mut self, first: usize, indent: usize, tone: Tone, text: &str) {
+        let mut line = " ".repeat(first);
+        let mut is_empty = true;
+        let mut used = first;
+        for word in text.split_whitespace() {
+            let mut rest: Vec<char> = word.chars().map(shown).collect();
+            if !is_empty && used + 1 + rest.len() > self.width {
+                self.put(tone, &line);
+                line = " ".repeat(indent);
+                (is_empty, used) = (true, indent);
+            }
+            if !is_empty {
+                line.push(' ');
+                used += 1;
+            }
+            // a word that is longer than a line is broken
+            while used + rest.len() > self.width {
+                let tail = rest.split_off(self.width - used);
+                line.extend(&rest);
+                self.put(tone, &line);
+                line = " ".repeat(indent);
+                used = indent;
+                rest = tail;
+            }
+            line.extend(&rest);
+            used += rest.len();
+            is_empty = false;
+        }
+        self.put(tone, &line);
+    }
+
+    /// A line that must stay whole to be copied, such as a command; it may be wider than the page.
+    pub fn whole(&mut self, indent: usize, text: &str) {
+        let text: String = text.chars().map(shown).collect();
+        self.put(Tone::Plain, &format!("{}{text}", " ".repeat(indent)));
+    }
+
+    /// A table, indented by two.
+    pub fn table(&mut self, table: &Table) {
+        let indent = 2;
+        let (columns, widths) = table.fit(self.width - indent);
+        let row = |cells: &dyn Fn(usize) -> String| {
+            let mut line = " ".repeat(indent);
+            for (k, (column, width)) in columns.iter().zip(&widths).enumerate() {
+                let cell = cut(&cells(*column), *width);
+                let pad = " ".repeat(width - cell.chars().count());
+                let gap = if k > 0 { " ".repeat(GAP) } else { String::new() };
+                line += &gap;
+                line += &if table.columns[*column].right { pad + &cell } else { cell + &pad };
+            }
+            line.truncate(line.trim_end().len());
+            line
+        };
+        let head = row(&|column| table.columns[column].title.to_string());
+        self.put(Tone::Quiet, &head);
+        for (tone, cells) in &table.rows {
+            let line = row(&|column| cells[column].clone());
+            self.put(*tone, &line);
+        }
+    }
+
+    fn put(&mut self, tone: Tone, line: &str) {
+        let line = line.trim_end();
+        match (self.style, tone.escape()) {
+            (Style::Ansi, escape @ ("\x1b[1m" | "\x1b[31m" | "\x1b[33m" | "\x1b[2m")) if !line.is_empty() => {
+                let text = line.trim_start();
+                let indent = &line[..line.len() - text.len()];
+                self.text += &format!("{indent}{escape}{text}\x1b[0m\n");
+            }
+            _ => self.text += &format!("{line}\n"),
+        }
+    }
+}
+
+/// Control characters could steer a terminal.
+fn shown(letter: char) -> char {
+    if letter.is_control() { '\u{fffd}' } else { letter }
+}
+
+/// No more than `width` letters, the last an ellipsis if some were cut.
+fn cut(text: &str, width: usize) -> String {
+    let text: String = text.chars().map(|letter| if letter == '\n' { ' ' } else { shown(letter) }).collect();
+    if text.chars().count() <= width {
+        return text;
+    }
+    let kept: String = text.chars().take(width.saturating_sub(1)).collect();
+    format!("{}…", kept.trim_end())
+}
+
+/// One column of a table.
+pub(super) struct Column {
+    title: &'static str,
+    right: bool,
+    may_cut: bool,
+    /// Columns with a greater number go first where there is no room; 0 stays.
+    drop: u8,
+}
+
+/// A table: every row has a cell for every column.
+pub(super) struct Table {
+    columns: Vec<Column>,
+    rows: Vec<(Tone, Vec<String>)>,
+}
+
+impl Table {
+    pub fn new() -> Table {
+        Table { columns: Vec::new(), rows: Vec::new() }
+    }
+
+    /// A column of texts that may be cut.
+    pub fn text(mut self, title: &'static str) -> Table {
+        self.columns.push(Column { title, right: false, may_cut: true, drop: 0 });
+        self
+    }
+
+    /// A column of numbers, aligned right; it is left out where there is no room if `drop` is above 0.
+    pub fn number(mut self, title: &'static str, drop: u8) -> Table {
+        self.columns.push(Column { title, right: true, may_cut: false, drop });
+        self
+    }
+
+    /// A column of short words.
+    pub fn word(mut self, title: &'static str) -> Table {
+        self.columns.push(Column { title, right: false, may_cut: false, drop: 0 });
+        self
+    }
+
+    pub fn row(&mut self, tone: Tone, cells: Vec<String>) {
+        debug_assert_eq!(cells.len(), self.columns.len());
+        self.rows.push((tone, cells));
+    }
+
+    /// Which columns are shown, and how wide.
+    fn fit(&self, room: usize) -> (Vec<usize>, Vec<usize>) {
+        let natural: Vec<usize> = self
+            .columns
+            .iter()
+            .enumerate()
+            .map(|(c, column)| {
+                let cells = self.rows.iter().map(|row| row.1[c].chars().count());
+                cells.chain([column.title.chars().count()]).max().unwrap_or(0)
+            })
+            .collect();
+        let mut shown: Vec<usize> = (0..self.columns.len()).collect();
+        loop {
+            let mut widths: Vec<usize> = shown.iter().map(|c| natural[*c]).collect();
+            let total = |widths: &[usize]| widths.iter().sum::<usize>() + GAP * widths.len().saturating_sub(1);
+            let droppable = shown.iter().copied().filter(|c| self.columns[*c].drop > 0);
+            let next = droppable.max_by_key(|c| self.columns[*c].drop);
+            let least = if next.is_some() { FIRST_CUT } else { LAST_CUT };
+            while total(&widths) > room {
+                let may_cut = (0..shown.len()).filter(|k| self.columns[shown[*k]].may_cut && widths[*k] > least);
+                let Some(widest) = may_cut.max_by_key(|k| widths[*k]) else { break };
+                widths[widest] -= 1;
+            }
+            match next {
+                Some(column) if total(&widths) > room => shown.retain(|c| *c != column),
+                _ => return (shown, widths),
+            }
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn paper(width: usize) -> Paper {
+        Paper::new(Style::Plain, width)
+    }
+
+    #[test]
+    fn text_is_wrapped_and_long_words_are_broken() {
+        let mut page = paper(60);
+        page.say(2, Tone::Plain, &format!("a word {} end", "x".repeat(130)));
+        let text = page.finish();
+        assert!(text.lines().all(|line| line.chars().count() <= 60), "{text}");
+        assert_eq!(text.replace([' ', '\n'], ""), format!("aword{}end", "x".repeat(130)));
+    }
+
+    #[test]
+    fn a_table_drops_columns_before_it_cuts_names_to_nothing() {
+        let mut table = Table::new().text("step").number("median", 2).number("longest", 0);
+        table.row(Tone::Plain, vec!["s".repeat(70), "1 ns".into(), "2 ns".into()]);
+        let mut page = paper(60);
+        page.table(&table);
+        let text = page.finish();
+        assert!(text.lines().all(|line| line.chars().count() <= 60), "{text}");
+        assert!(text.contains("median") && text.contains("2 ns") && text.contains('…'), "{text}");
+    }
+
+    #[test]
+    fn colour_is_only_added_to_the_same_words() {
+        let write = |style| {
+            let mut page = Paper::new(style, 80);
+            page.heading("Findings");
+            page.item(Tone::Bad, "both gates open");
+            page.finish()
+        };
+        let plain = write(Style::Plain);
+        let colour = write(Style::Ansi);
+        assert!(!plain.contains('\x1b') && colour.contains('\x1b'));
+        let mut bare = colour;
+        for escape in ["\x1b[1m", "\x1b[31m", "\x1b[0m"] {
+            bare = bare.replace(escape, "");
+        }
+        assert_eq!(bare, plain);
+    }
+
+    #[test]
+    fn names_cannot_steer_a_terminal() {
+        let mut page = Paper::new(Style::Ansi, 80);
+        page.say(0, Tone::Plain, "title\x1b[2J");
+        assert!(!page.finish().contains('\x1b'));
+    }
+}

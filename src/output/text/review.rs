@@ -1,0 +1,80 @@
+//! The review: verdict first.
+
+use super::Page;
+use super::paper::{Paper, Tone};
+use super::{findings, notes, rules, steps};
+use crate::output::words;
+use crate::review::{Call, Review, Verdict};
+use crate::scenario::Scenario;
+use crate::sweep::SweepReport;
+
+/// Most reasons of the verdict.
+const REASONS: usize = 5;
+
+/// The text of `review`: verdict, reasons, steps, findings, rules, notes.
+pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
+    let mut paper = page.paper();
+    verdict(&mut paper, &review.verdict);
+    body(&mut paper, page, scenario, &review.asked, &review.sweep);
+    paper.finish()
+}
+
+/// The verdict in one sentence, and its reasons.
+pub(super) fn verdict(paper: &mut Paper, verdict: &Verdict) {
+    let (words, sentence) = (verdict.call.words(), verdict.sentence.trim());
+    let sentence = match sentence.to_lowercase().starts_with(words) {
+        true => sentence.to_string(),
+        false => format!("{words}: {sentence}"),
+    };
+    let mut letters = sentence.chars();
+    let capital = letters.next().map_or_else(String::new, |first| first.to_uppercase().collect());
+    let tone = match verdict.call {
+        Call::Broken => Tone::Bad,
+        Call::Undecided => Tone::Unsure,
+        Call::Proved | Call::NoFailureFound => Tone::Strong,
+    };
+    paper.say(0, tone, &format!("{capital}{}", letters.as_str()));
+    for reason in verdict.reasons.iter().take(REASONS) {
+        paper.item(Tone::Plain, reason);
+    }
+    super::more(paper, verdict.reasons.len().saturating_sub(REASONS), "result.json");
+}
+
+/// Everything about a sweep below its first sentence.
+pub(super) fn body(
+    paper: &mut Paper,
+    page: &Page<'_>,
+    scenario: &Scenario,
+    asked: &crate::findings::Asked,
+    report: &SweepReport,
+) {
+    paper.heading(&format!("{}: steps, outcomes, settling times ({})", scenario.title, draws(report)));
+    if report.samples < report.plan.samples {
+        let (done, wanted) = (words::count(report.samples), words::count(report.plan.samples));
+        paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run."));
+    }
+    if scenario.cannot_run {
+        paper.say(2, Tone::Unsure, "This circuit cannot be run yet; see the notes.");
+    } else {
+        steps::steps(paper, scenario, report);
+    }
+    findings::findings(paper, page, scenario, asked, report);
+    rules::count(paper, report);
+    rules::not_judged(paper, scenario, report);
+    rules::margins(paper, scenario, report);
+    notes::notes(paper, scenario);
+}
+
+/// What was drawn: `Monte Carlo, 10,000 draws, uniform, seed 1`.
+pub(super) fn draws(report: &SweepReport) -> String {
+    let mut text = format!(
+        "Monte Carlo, {}, {}, seed {}",
+        words::many(report.samples, "draw"),
+        report.plan.draw.name(),
+        report.plan.seed
+    );
+    if report.plan.tries > 1 {
+        text += &format!(", {} tries a board", words::count(report.plan.tries));
+    }
+    text
+}

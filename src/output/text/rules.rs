@@ -1,0 +1,111 @@
+//! Rules that were not judged in every draw, and the margins of those without a failure.
+
+use super::paper::{Paper, Table, Tone};
+use crate::findings::Question;
+use crate::output::words;
+use crate::scenario::Scenario;
+use crate::sweep::{RuleReport, SweepReport};
+use crate::time::{Span, rounded};
+
+/// Most rules told of in each list.
+const MOST: usize = 5;
+
+/// A question in words: `settle_within, open_upper, step together`.
+fn about(scenario: &Scenario, question: &Question, with_step: bool) -> String {
+    let mut text = question.rule.word().to_string();
+    if let Some(name) = &question.name {
+        text += &format!(" \"{name}\"");
+    }
+    if let Some(pattern) = &question.pattern {
+        text += &format!(" ({})", pattern.words(&scenario.circuit));
+    }
+    if let Some(net) = question.net {
+        text += &format!(", {}", words::net(scenario, net));
+    }
+    if let Some(step) = words::step(scenario, question.moment).filter(|_| with_step) {
+        text += &format!(", step {step}");
+    }
+    text
+}
+
+/// What was asked and how it was answered, in one sentence.
+pub(super) fn count(paper: &mut Paper, report: &SweepReport) {
+    let broken = report.rules.iter().filter(|rule| rule.broken > 0).count() as u64;
+    let unjudged = report.rules.iter().filter(|rule| rule.broken == 0 && !rule.not_judged.is_empty()).count() as u64;
+    let asked = report.rules.len() as u64;
+    let rest = asked - broken - unjudged;
+    let draws = words::many(report.samples, "draw");
+    let text = format!(
+        "Asked: {} (a rule and a step, or a rule for the whole run). Broken: {}; not judged in some draws: {}; no failure found in {draws}: {}.",
+        words::many(asked, "question"),
+        words::count(broken),
+        words::count(unjudged),
+        words::count(rest),
+    );
+    paper.gap();
+    paper.say(0, Tone::Plain, &text);
+}
+
+/// Rules that were not judged in some draws, those with most such draws first.
+pub(super) fn not_judged(paper: &mut Paper, scenario: &Scenario, report: &SweepReport) {
+    let missed = |rule: &RuleReport| rule.not_judged.iter().map(|(_, n)| n).sum::<u64>();
+    let mut rules: Vec<&RuleReport> = report.rules.iter().filter(|rule| missed(rule) > 0).collect();
+    rules.sort_by_key(|rule| (!rule.question.written, std::cmp::Reverse(missed(rule))));
+    if rules.is_empty() {
+        return;
+    }
+    paper.heading("Not judged");
+    for rule in rules.iter().take(MOST) {
+        let why = rule.not_judged.iter().map(|(reason, n)| format!("{} {}", reason.words(), words::count(*n)));
+        let text = format!(
+            "{}: {} ({})",
+            about(scenario, &rule.question, true),
+            words::many(missed(rule), "draw"),
+            why.collect::<Vec<_>>().join(", ")
+        );
+        paper.item(Tone::Unsure, &text);
+    }
+    super::more(paper, rules.len().saturating_sub(MOST), "rules.csv");
+}
+
+/// Margins of rules with a number that no draw broke, smallest first; of one rule the step with the smallest.
+pub(super) fn margins(paper: &mut Paper, scenario: &Scenario, report: &SweepReport) {
+    let mut least: Vec<(&RuleReport, i128, Span)> = Vec::new();
+    for rule in &report.rules {
+        let (Some(margin), Some(bound)) = (rule.margin, rule.question.bound) else { continue };
+        if bound == Span::ZERO {
+            continue;
+        }
+        let same = |other: &Question| {
+            let key = |it: &Question| (it.rule, it.index, it.net);
+            key(other) == key(&rule.question)
+        };
+        match least.iter_mut().find(|entry| same(&entry.0.question)) {
+            Some(entry) if margin < entry.1 => *entry = (rule, margin, bound),
+            Some(_) => {}
+            None => least.push((rule, margin, bound)),
+        }
+    }
+    // a rule that one of its steps broke is among the findings
+    least.retain(|(rule, margin, _)| rule.broken == 0 && *margin >= 0);
+    least.sort_by_key(|entry| entry.1);
+    if least.is_empty() {
+        return;
+    }
+    paper.heading(&format!("Smallest margins without a failure, in {}", words::many(report.samples, "draw")));
+    let mut table = Table::new().number("margin", 0).number("of", 0).text("rule").text("step").number("sample", 1);
+    for (rule, margin, bound) in least.iter().take(MOST) {
+        table.row(
+            Tone::Plain,
+            vec![
+                rounded(*margin),
+                bound.rounded(),
+                about(scenario, &rule.question, false),
+                words::step(scenario, rule.question.moment).unwrap_or("whole run").to_string(),
+                rule.margin_sample.map_or_else(String::new, |sample| sample.to_string()),
+            ],
+        );
+    }
+    paper.table(&table);
+    super::more(paper, least.len().saturating_sub(MOST), "rules.csv");
+}

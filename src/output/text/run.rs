@@ -1,0 +1,95 @@
+//! One run.
+
+use super::Page;
+use super::findings::{about, worst};
+use super::paper::{Paper, Table, Tone};
+use super::{notes, steps};
+use crate::engine::{End, Window};
+use crate::findings::{Asked, Fact};
+use crate::output::words;
+use crate::review::RunReport;
+use crate::scenario::Scenario;
+
+/// Most windows told of.
+const WINDOWS: usize = 20;
+/// Most findings told of.
+const FACTS: usize = 8;
+
+/// The text of `run`: its windows, then what was found in it.
+pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'_>) -> String {
+    let mut paper = page.paper();
+    let broken = report.facts.iter().filter(|fact| fact.breaks_rule).count() as u64;
+    let (tone, text) = match broken {
+        0 => (Tone::Strong, "no failure found in this one run".to_string()),
+        1 => (Tone::Bad, "1 finding breaks a rule in this run".to_string()),
+        n => (Tone::Bad, format!("{} findings break a rule in this run", words::count(n))),
+    };
+    let title = format!("{}, {}: {text}.", scenario.title, words::delays(&report.which));
+    paper.say(0, tone, &title);
+
+    paper.heading("Steps");
+    let windows = &report.trace.windows;
+    if windows.is_empty() {
+        paper.say(2, Tone::Plain, "There is no step.");
+    } else {
+        table(&mut paper, scenario, windows);
+        super::more(&mut paper, windows.len().saturating_sub(WINDOWS), "the JSON, with --json");
+    }
+    if let Some(step) = words::step(scenario, report.trace.stopped_before) {
+        paper.say(2, Tone::Unsure, &format!("The run stops before step {step}, which is not analysed yet."));
+    }
+    if !report.facts.is_empty() {
+        paper.heading("Found in this run, worst first");
+        for fact in report.facts.iter().take(FACTS) {
+            let (tone, words) = told(scenario, asked, fact);
+            paper.item(tone, &words);
+        }
+        super::more(&mut paper, report.facts.len().saturating_sub(FACTS), "the JSON, with --json");
+    }
+    paper.gap();
+    let events = words::many(report.trace.events, "event");
+    let end = report.trace.end.from_start().rounded();
+    paper.say(0, Tone::Plain, &format!("{events} until {end}. One run says nothing of other delays."));
+    notes::notes(&mut paper, scenario);
+    paper.finish()
+}
+
+fn table(paper: &mut Paper, scenario: &Scenario, windows: &[Window]) {
+    let mut table =
+        Table::new().text("step").number("from", 1).word("end").number("settling", 0).text("at rest");
+    for window in windows.iter().take(WINDOWS) {
+        let (tone, rest) = match window.end {
+            End::Settled => (Tone::Plain, steps::state(scenario, &scenario.outputs, &window.state)),
+            End::Oscillating { period, .. } => (Tone::Unsure, format!("period {}", period.rounded())),
+            End::Unsettled(hit) => (Tone::Unsure, format!("reached {}", hit.words())),
+            End::Cut => (Tone::Unsure, "cut by the next step".to_string()),
+        };
+        let early = if window.began_at_rest { "" } else { " (applied before rest)" };
+        table.row(
+            tone,
+            vec![
+                words::step(scenario, Some(window.moment)).unwrap_or_default().to_string(),
+                window.start.from_start().rounded(),
+                window.end.word().to_string(),
+                window.settling.map_or_else(String::new, |time| time.rounded()),
+                format!("{rest}{early}"),
+            ],
+        );
+    }
+    paper.table(&table);
+}
+
+/// One finding of the run.
+fn told(scenario: &Scenario, asked: &Asked, fact: &Fact) -> (Tone, String) {
+    let mut text = about(scenario, asked, &fact.subject);
+    if let Some(value) = words::worst_of(fact) {
+        text += &format!(": {}", worst(fact.subject.kind, value));
+    }
+    if let Some((from, to)) = fact.place {
+        let unit = scenario.unit;
+        let time = |at: crate::time::Time| at.from_start().decimal(unit);
+        text += &format!(", from {} to {} {unit}", time(from), time(to));
+    }
+    let (tone, rule) = if fact.breaks_rule { (Tone::Bad, "breaks a rule") } else { (Tone::Plain, "breaks no rule") };
+    (tone, format!("{text} ({rule})"))
+}
