@@ -58,7 +58,7 @@ pub const INTERRUPTED: u8 = 130;
 impl From<ReadError> for Failure {
     fn from(error: ReadError) -> Failure {
         match error {
-            ReadError::Text(faults) => Failure::Faults(Box::new(faults)),
+            ReadError::Faults(faults) => Failure::Faults(Box::new(faults)),
             other => Failure::Bad(other.to_string()),
         }
     }
