@@ -10,9 +10,9 @@ use rand_chacha::ChaCha8Rng;
 use stillgate::circuit::NetId;
 use stillgate::control::Control;
 use stillgate::engine::{End, Program};
-use stillgate::findings::{Asked, Fact, Judge, Kind, Reason, RuleKey, Seen, Sink};
+use stillgate::findings::{Asked, Fact, Judge, Reason, Seen, Sink};
 use stillgate::instance::{Instance, Which};
-use stillgate::logic::Value;
+use stillgate::logic::{State, Value};
 use stillgate::scenario::{
     Alternative, Before, EdgeCount, EdgeKind, EdgeSpec, Expectation, GlitchFree, Mark, MinPulse, Never, NeverAtRest,
     Oscillation, Permission, Reference, RefNet, Rules, Scenario, Swallowed, Timing,
@@ -35,10 +35,10 @@ struct Heard {
 #[derive(Debug)]
 struct HeardWindow {
     moment: u32,
-    before: Option<Vec<Value>>,
+    before: Option<State>,
     began_at_rest: bool,
     end: End,
-    state: Vec<Value>,
+    state: State,
     time: u64,
     order: u64,
 }
@@ -60,7 +60,7 @@ impl Sink for Heard {
     }
 
     fn fact(&mut self, fact: Fact) {
-        let found = Found { breaks_rule: fact.breaks_rule, measure: fact.measure };
+        let found = Found { breaks_rule: fact.breaks_rule, worst: fact.measure.into_iter().collect() };
         let before = self.said.facts.insert(fact.subject, found);
         assert_eq!(before, None, "{:?} found twice", fact.subject);
     }
@@ -70,14 +70,12 @@ impl Sink for Heard {
     }
 
     fn window(&mut self, window: &Seen<'_>) {
-        let nets = |state: &stillgate::logic::State| (0..64).map(|net| state.get(net)).collect::<Vec<_>>();
-        let _ = nets;
         self.windows.push(HeardWindow {
             moment: window.moment,
-            before: None,
+            before: window.before.cloned(),
             began_at_rest: window.began_at_rest,
             end: window.end,
-            state: Vec::new(),
+            state: window.state.clone(),
             time: window.time.fs(),
             order: window.order,
         });
@@ -191,6 +189,7 @@ struct Met {
     broken: BTreeMap<&'static str, usize>,
     not_judged: BTreeMap<&'static str, usize>,
     facts: BTreeMap<&'static str, usize>,
+    sums: BTreeMap<String, (usize, String)>,
 }
 
 impl Met {
@@ -230,6 +229,18 @@ fn rules_in_words(scenario: &Scenario, asked: &Asked) -> String {
     text
 }
 
+/// Is the same found? Of several that are equally bad the judges may tell any one.
+fn same(slow: Option<&Found>, fast: Option<&Found>) -> bool {
+    match (slow, fast) {
+        (Some(slow), Some(fast)) => {
+            slow.breaks_rule == fast.breaks_rule
+                && slow.worst.is_empty() == fast.worst.is_empty()
+                && fast.worst.iter().all(|it| slow.worst.contains(it))
+        }
+        _ => slow.is_none() && fast.is_none(),
+    }
+}
+
 /// The first difference, in words.
 fn difference(asked: &Asked, slow: &Said, fast: &Said) -> Option<String> {
     let mut all = BTreeSet::new();
@@ -243,11 +254,50 @@ fn difference(asked: &Asked, slow: &Said, fast: &Said) -> Option<String> {
     let subjects: BTreeSet<_> = slow.facts.keys().chain(fast.facts.keys()).collect();
     for subject in subjects {
         let (slow, fast) = (slow.facts.get(subject), fast.facts.get(subject));
-        if slow != fast {
+        if !same(slow, fast) {
             all.insert(format!("{subject:?}: slow {slow:?}, fast {fast:?}"));
         }
     }
     (!all.is_empty()).then(|| all.into_iter().collect::<Vec<_>>().join("\n"))
+}
+
+/// What is told of windows is what the record holds.
+fn windows_agree(scenario: &Scenario, log: &Log, heard: &Heard, orders: &mut Orders, of: &str) {
+    let record = &log.recorder.record;
+    let reached: Vec<(u32, bool)> = record
+        .windows
+        .iter()
+        .flat_map(|window| window.opening.moments.iter().map(|moment| (*moment, *moment == window.moment)))
+        .collect();
+    assert_eq!(heard.reached, reached, "{of}: moments");
+    assert_eq!(heard.windows.len(), record.windows.len(), "{of}");
+    let values = |state: &State| scenario.circuit.nets().map(|net| state.get(net.index())).collect::<Vec<_>>();
+    for (number, (heard, window)) in heard.windows.iter().zip(&record.windows).enumerate() {
+        let of = format!("{of}, window {number}: {heard:?} of {window:?}");
+        assert_eq!((heard.moment, heard.end), (window.moment, window.end), "{of}");
+        assert_eq!(heard.began_at_rest, window.began_at_rest, "{of}");
+        assert_eq!(values(&heard.state), window.state, "{of}");
+        let known = window.began_at_rest && !window.opening.state.contains(&Value::X);
+        let before = known.then(|| window.opening.state.clone());
+        assert_eq!(heard.before.as_ref().map(values), before, "{of}");
+        match window.end {
+            End::Settled => assert_eq!(Some(heard.time), window.settling, "{of}"),
+            End::Cut => assert_eq!(heard.time, window.stop.saturating_sub(window.settle_from), "{of}"),
+            _ => {}
+        }
+        let order = slow_judge::order(scenario, log, number);
+        let known = orders.by_hash.entry(heard.order).or_insert_with(|| order.clone());
+        assert_eq!(*known, order, "{of}: two orders of one hash");
+        let known = *orders.hash_of.entry(order).or_insert(heard.order);
+        assert_eq!(known, heard.order, "{of}: two hashes of one order");
+    }
+}
+
+/// Orders in which loop nets changed, and their hashes.
+#[derive(Default)]
+struct Orders {
+    by_hash: HashMap<u64, Vec<BTreeSet<NetId>>>,
+    hash_of: HashMap<Vec<BTreeSet<NetId>>, u64>,
 }
 
 /// Compares several runs of one random scenario.
@@ -257,6 +307,7 @@ fn compare(case: &Case, rng: &mut ChaCha8Rng, delays: Lengths, met: &mut Met) {
     let asked = Asked::of(&scenario);
     let program = Program::with_rest(&scenario, &case.rest);
     let mut judge = Judge::new(&scenario, &asked, Heard::default());
+    let mut orders = Orders::default();
     for sample in 0..3 {
         // one judge for all runs: nothing may stay behind from the run before
         judge.sink = Heard::default();
@@ -264,7 +315,30 @@ fn compare(case: &Case, rng: &mut ChaCha8Rng, delays: Lengths, met: &mut Met) {
         program.machine().run(&instance, &Control::default(), &mut judge);
         let mut log = Log::new(scenario.circuit.net_count());
         program.machine().run(&instance, &Control::default(), &mut log);
+        windows_agree(&scenario, &log, &judge.sink, &mut orders, &format!("{} sample {sample}", case.name));
         let slow = slow_judge::judge(&scenario, &asked, &log);
+        if std::env::var("SUM").is_ok() {
+            if std::env::var("ONE").is_ok_and(|it| case.name.ends_with(&format!("case {it}"))) && sample == std::env::var("SAM").unwrap().parse::<u64>().unwrap() {
+                println!("\nONE {:?}\n{}\n{}\n{:#?}\n{}", difference(&asked, &slow, &judge.sink.said), print(&scenario, &case.rest, &instance), rules_in_words(&scenario, &asked), log.recorder.record,
+                log.batches.iter().map(|b| format!("{b:?}\n")).collect::<String>());
+            }
+            for q in 0..asked.questions.len() as u32 {
+                let (s, f) = (slow.answers.get(&q), judge.sink.said.answers.get(&q));
+                if s != f {
+                    let sl = |a: Option<&Answer>| match a { Some(Answer::Judged{broken, slack}) => format!("judged {broken} {}", slack.is_some()), a => format!("{a:?}") };
+                    met.sums.entry(format!("{:?}: slow {} fast {}", asked.questions[q as usize].rule, sl(s), sl(f))).or_insert((0, format!("{} s{sample} q{q} slow {s:?} fast {f:?}", case.name))).0 += 1;
+                }
+            }
+            let subjects: BTreeSet<_> = slow.facts.keys().chain(judge.sink.said.facts.keys()).collect();
+            for x in subjects {
+                let (s, f) = (slow.facts.get(x), judge.sink.said.facts.get(x));
+                if !same(s, f) {
+                    met.sums.entry(format!("fact {:?} {:?} q{}: slow {} fast {}", x.kind, x.shape, x.question.is_some(), s.is_some(), f.is_some())).or_insert((0, format!("{} s{sample} {x:?} slow {s:?} fast {f:?}", case.name))).0 += 1;
+                }
+            }
+            met.count(&asked, &slow);
+            continue;
+        }
         if let Some(difference) = difference(&asked, &slow, &judge.sink.said) {
             panic!(
                 "{}, sample {sample}:\n{difference}\n\n{}\n{}\n\n{:#?}\n{:?}",

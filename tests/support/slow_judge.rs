@@ -7,7 +7,7 @@ use stillgate::circuit::{GateId, NetId, NetSet, WireId};
 use stillgate::engine::{Closing, End, Finish, Observer, Opening};
 use stillgate::findings::{Asked, Kind, Measure, Pattern, Question, Reason, RuleKey, Shape, Subject};
 use stillgate::logic::{State, Value};
-use stillgate::scenario::{Alternative, EdgeSpec, MomentKind, Oscillation, Scenario, Step, Swallowed};
+use stillgate::scenario::{Alternative, EdgeSpec, Oscillation, Scenario, Step, Swallowed};
 use stillgate::time::{Span, Time};
 
 use super::recorder::{RecordedWindow, Recorder};
@@ -83,10 +83,11 @@ pub enum Answer {
 }
 
 /// What was found about one subject.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Found {
     pub breaks_rule: bool,
-    pub measure: Option<Measure>,
+    /// The worst; several that are equally bad where there is a choice.
+    pub worst: Vec<Measure>,
 }
 
 /// Everything that is said of one run.
@@ -134,10 +135,10 @@ pub fn judge(scenario: &Scenario, asked: &Asked, log: &Log) -> Said {
         let question = &asked.questions[number as usize];
         match question.rule {
             RuleKey::Never => slow.never(number, question),
-            RuleKey::NeverAtRest | RuleKey::GlitchFree | RuleKey::SettleWithin => {}
             RuleKey::Expect => slow.expect(number, question),
             RuleKey::Edges => slow.edges(number, question),
-            RuleKey::Reference | RuleKey::CriticalRace => slow.whole_window(number, question),
+            RuleKey::NeverAtRest | RuleKey::GlitchFree | RuleKey::SettleWithin | RuleKey::Reference => {}
+            RuleKey::CriticalRace => slow.critical_race(number, question),
             RuleKey::Oscillation if question.moment.is_none() => slow.oscillation_somewhere(number),
             RuleKey::Oscillation => slow.oscillation(number, question),
             RuleKey::Timing => slow.timing(number, question),
@@ -176,9 +177,13 @@ impl<'a> Slow<'a> {
     }
 
     fn fact(&mut self, subject: Subject, breaks_rule: bool, measure: Option<Measure>) {
-        let found = self.said.facts.entry(subject).or_insert(Found { breaks_rule, measure });
-        if measure.map(|it| it.rank) > found.measure.map(|it| it.rank) {
-            found.measure = measure;
+        let found = self.said.facts.entry(subject).or_insert(Found { breaks_rule, worst: Vec::new() });
+        let Some(measure) = measure else { return };
+        if found.worst.first().is_some_and(|worst| worst.rank < measure.rank) {
+            found.worst.clear();
+        }
+        if found.worst.first().is_none_or(|worst| worst.rank == measure.rank) {
+            found.worst.push(measure);
         }
     }
 
@@ -260,7 +265,7 @@ impl<'a> Slow<'a> {
     }
 
     fn spares(&self, window: &NetWindow) -> bool {
-        self.last_of(window).is_some_and(|last| self.spared(last))
+        window.began_at_rest && !window.ended_at_rest && self.last_of(window).is_some_and(|last| self.spared(last))
     }
 
     /// Why a window of nets is not valid, if it is not.
@@ -307,8 +312,11 @@ impl<'a> Slow<'a> {
 
     fn not_reached(&mut self) {
         for (number, question) in self.asked.questions.iter().enumerate() {
-            if question.moment.is_some_and(|moment| self.window_of(moment).is_none()) {
-                self.answer(number as u32, Answer::Not(Reason::NotReached));
+            if question.rule == RuleKey::Reference {
+                self.answer(number as u32, Answer::Not(Reason::NotAnalysedYet));
+            } else if question.moment.is_some_and(|moment| self.window_of(moment).is_none()) {
+                let reason = if self.stopped() { Reason::NotAnalysedYet } else { Reason::NotReached };
+                self.answer(number as u32, Answer::Not(reason));
             }
         }
     }
@@ -319,10 +327,15 @@ impl<'a> Slow<'a> {
             let cone = self.scenario.circuit.cone(&nets);
             for window in self.net_windows(&cone) {
                 let Some(number) = self.name(&window, RuleKey::NeverAtRest, index as u32, None) else { continue };
-                if self.spares(&window) {
+                if window.from.is_some() && self.spares(&window) {
                     continue;
                 }
-                let answer = match (self.invalid(&window), shows(&window.state, &rule.state)) {
+                // the start is a state of rest, whatever comes
+                let (reason, state) = match window.from {
+                    Some(_) => (self.invalid(&window), &window.state[..]),
+                    None => (None, self.start()),
+                };
+                let answer = match (reason, shows(state, &rule.state)) {
                     (Some(reason), _) => Answer::Not(reason),
                     (None, None) => Answer::Not(Reason::Unresolved),
                     (None, Some(broken)) => Answer::Judged { broken, slack: None },
@@ -382,24 +395,24 @@ impl<'a> Slow<'a> {
             let bound = rule.map_or(Span::ZERO, |rule| self.scenario.rules.glitch_free[rule].shorter_than);
             let cone = self.scenario.circuit.cone(&[*net]);
             for window in self.net_windows(&cone) {
-                let question = rule.and_then(|rule| self.name(&window, RuleKey::GlitchFree, rule as u32, Some(*net)));
                 let Some(from) = window.from.filter(|from| Some(*from as u32) != self.scenario.begin_window()) else {
                     continue;
                 };
-                if self.spares(&window) || (rule.is_some() && question.is_none()) {
+                if self.spares(&window) || self.counts_edges(from, *net) {
                     continue;
                 }
+                let question = rule.and_then(|rule| self.name(&window, RuleKey::GlitchFree, rule as u32, Some(*net)));
                 let moment = match question {
                     Some(number) => self.asked.questions[number as usize].moment,
-                    None => self.first_that_touches(from, &cone),
+                    None => Some(self.windows[from].moment),
                 };
-                let Some(moment) = moment else { continue };
-                if question.is_none() && self.step_of(moment).is_some_and(|it| it.edges.iter().any(|e| e.net == *net)) {
-                    continue;
-                }
                 let before = self.windows[from].opening.state[net.index()];
                 let moves = self.moves_in(*net, &window);
-                let unknown = before == Value::X || moves.iter().any(|it| it.new == Value::X);
+                let whole = moves.last().map_or(0, |it| it.at) - moves.first().map_or(0, |it| it.at);
+                let mut unknown = before == Value::X || moves.iter().any(|it| it.new == Value::X);
+                // whatever an X hides, if all of it is shorter than the bound, it is struck out
+                let hidden = unknown && before != Value::X && moves.last().is_some_and(|it| it.new == before) && whole < bound.fs();
+                unknown &= !hidden;
                 let reason = self.invalid(&window).or(unknown.then_some(Reason::Unresolved));
                 if let Some(reason) = reason {
                     if let Some(number) = question {
@@ -407,21 +420,23 @@ impl<'a> Slow<'a> {
                     }
                     continue;
                 }
-                let times: Vec<u64> = moves.iter().map(|it| it.at).collect();
-                let left = strike_out(&times, bound.fs());
-                let same = (left.len() % 2 == 0, before);
-                let (shape, least) = match same {
-                    (true, Value::Zero) => (Shape::Static0, 2),
-                    (true, _) => (Shape::Static1, 2),
-                    (false, _) => (Shape::Dynamic, 3),
+                let (left, widest) = match hidden {
+                    true => (Vec::new(), Some(whole)),
+                    false => strike_out(before, &moves, bound.fs()),
                 };
-                let broken = left.len() >= least;
+                let broken = is_glitch(before, &left);
+                let slack = widest.filter(|_| bound.fs() > 0).map(|widest| -short(bound, widest));
                 if let Some(number) = question {
-                    self.answer(number, Answer::Judged { broken, slack: None });
+                    self.answer(number, Answer::Judged { broken, slack });
                 }
                 if broken {
-                    let narrowest = left.windows(2).map(|pair| pair[1] - pair[0]).min().expect("a pulse");
-                    let subject = Self::subject(Kind::Glitch, question, Some(*net), Some(moment));
+                    let shape = match (left.len() % 2 == 0, before) {
+                        (true, Value::Zero) => Shape::Static0,
+                        (true, _) => Shape::Static1,
+                        (false, _) => Shape::Dynamic,
+                    };
+                    let narrowest = left.windows(2).map(|pair| pair[1].at - pair[0].at).min().expect("a pulse");
+                    let subject = Self::subject(Kind::Glitch, question, Some(*net), moment);
                     let measure = Measure { rank: narrowest, value: narrowest };
                     self.fact(Subject { shape: Some(shape), ..subject }, question.is_some(), Some(measure));
                 }
@@ -429,43 +444,46 @@ impl<'a> Slow<'a> {
         }
     }
 
-    /// The first moment at a window's beginning that can change an input of a cone.
-    fn first_that_touches(&self, window: usize, cone: &NetSet) -> Option<u32> {
-        let stimulus = &self.scenario.stimulus;
-        let mut moments = self.windows[window].opening.moments.iter().copied();
-        moments.find(|it| stimulus.inputs_of(&stimulus.moments[*it as usize]).iter().any(|net| cone.contains(*net)))
+    /// A step at a window's beginning says how often this net must move: that replaces the glitch test.
+    fn counts_edges(&self, window: usize, net: NetId) -> bool {
+        let mut steps = self.windows[window].opening.moments.iter().filter_map(|moment| self.step_of(*moment));
+        steps.any(|step| step.edges.iter().any(|count| count.net == net))
     }
 
     fn settle_within(&mut self) {
         for net in &self.scenario.watched {
             let cone = self.scenario.circuit.cone(&[*net]);
             for window in self.net_windows(&cone) {
-                let Some(number) = self.name(&window, RuleKey::SettleWithin, 0, Some(*net)) else { continue };
-                let Some(from) = window.from else { continue };
-                if self.spares(&window) {
-                    continue;
-                }
-                let question = &self.asked.questions[number as usize];
-                let bound = question.bound.expect("a bound");
+                let Some(from) = window.from.filter(|_| !self.spares(&window)) else { continue };
+                // every step of that instant that has a bound of its own, and the first that has the rule's
+                let moments = self.windows[from].opening.moments.iter();
+                let asks = |it: &u32| self.asked.find(RuleKey::SettleWithin, 0, Some(*net), Some(*it));
+                let own = |it: &&u32| self.step_of(**it).is_some_and(|step| step.settle_within.is_some());
+                let mut numbers: Vec<u32> = moments.clone().filter(own).filter_map(asks).collect();
+                numbers.extend(moments.filter(|it| !own(it)).find_map(asks));
                 let last = self.moves_in(*net, &window).last().map_or(0, |it| it.at);
                 let time = last.saturating_sub(self.windows[from].settle_from);
-                let broken = time > bound.fs();
-                let answer = match self.invalid(&window) {
-                    Some(Reason::BeganBeforeRest) => Answer::Not(Reason::BeganBeforeRest),
-                    Some(reason) if !broken => Answer::Not(reason),
-                    _ => Answer::Judged { broken, slack: Some(-short(bound, time)) },
-                };
-                if matches!(answer, Answer::Judged { broken: true, .. }) {
-                    let subject = Self::subject(Kind::SettleWithin, Some(number), Some(*net), question.moment);
-                    self.fact(subject, true, Some(Measure::long(Span::from_fs(time))));
+                for number in numbers {
+                    let question = &self.asked.questions[number as usize];
+                    let bound = question.bound.expect("a bound");
+                    let broken = time > bound.fs();
+                    let answer = match self.invalid(&window) {
+                        Some(Reason::BeganBeforeRest) => Answer::Not(Reason::BeganBeforeRest),
+                        Some(reason) if !broken => Answer::Not(reason),
+                        _ => Answer::Judged { broken, slack: Some(-short(bound, time)) },
+                    };
+                    if matches!(answer, Answer::Judged { broken: true, .. }) {
+                        let subject = Self::subject(Kind::SettleWithin, Some(number), Some(*net), question.moment);
+                        self.fact(subject, true, Some(Measure::long(Span::from_fs(time))));
+                    }
+                    self.answer(number, answer);
                 }
-                self.answer(number, answer);
             }
         }
     }
 
-    /// Questions that need a whole window from rest to rest, and that the sweep (or nobody yet) answers.
-    fn whole_window(&mut self, number: u32, question: &Question) {
+    /// One run alone can only say that it went from rest to rest.
+    fn critical_race(&mut self, number: u32, question: &Question) {
         let moment = question.moment.expect("a moment");
         let Some(window) = self.window_of(moment).map(|window| &self.windows[window]) else { return };
         if window.moment != moment {
@@ -475,14 +493,12 @@ impl<'a> Slow<'a> {
         let answer = if !window.began_at_rest && !power_up {
             Answer::Not(Reason::BeganBeforeRest)
         } else if window.end != End::Settled {
-            if question.rule == RuleKey::CriticalRace && self.spared(window) {
+            if self.spared(window) {
                 return;
             }
             Answer::Not(self.why(window))
         } else if window.state.contains(&Value::X) {
             Answer::Not(Reason::Unresolved)
-        } else if question.rule == RuleKey::Reference {
-            Answer::Not(Reason::NotAnalysedYet)
         } else {
             Answer::Judged { broken: false, slack: None }
         };
@@ -513,10 +529,11 @@ impl<'a> Slow<'a> {
     fn before_rest(&mut self, number: u32, question: &Question) {
         let moment = question.moment.expect("a moment");
         let Some(window) = self.window_of(moment).map(|window| &self.windows[window]) else { return };
-        if window.moment != moment {
-            return;
+        let broken = !window.began_at_rest;
+        if broken {
+            self.fact(Self::subject(Kind::BeforeRest, Some(number), None, Some(moment)), true, None);
         }
-        self.answer(number, Answer::Judged { broken: !window.began_at_rest, slack: None });
+        self.answer(number, Answer::Judged { broken, slack: None });
     }
 
     // ---- questions of the whole run ----
@@ -553,32 +570,34 @@ impl<'a> Slow<'a> {
             }
             all
         };
-        let forever = self.end() == End::Settled && !self.stopped();
         let end = self.log.recorder.record.end;
-        let length = |(from, _, to): &(u64, Option<usize>, Option<u64>)| match to {
-            Some(to) => to - from,
-            None if forever => u64::MAX,
-            None => end - from,
-        };
-        let bad = |length: u64| bound == 0 || length > bound;
+        let forever = self.end() == End::Settled && !self.stopped();
+        let length = |(from, _, to): &(u64, Option<usize>, Option<u64>)| to.unwrap_or(end) - from;
+        // one that lasts for ever is too long however short the rest of the run was
+        let bad = |it: &(u64, Option<usize>, Option<u64>)| length(it) > bound || bound == 0 || (it.2.is_none() && forever);
         let sure = stretches(&|shown| shown == Some(true));
-        let maybe = stretches(&|shown| shown != Some(false));
-        let mut worst = 0;
+        let mut slack = None;
         for stretch in &sure {
-            worst = worst.max(length(stretch));
-            if bad(length(stretch)) {
+            let this = bound as i64 - length(stretch) as i64;
+            if bound > 0 {
+                let this = if bad(stretch) { this.min(-1) } else { this };
+                slack = Some(slack.map_or(this, |slack: i64| slack.min(this)));
+            }
+            if bad(stretch) {
                 let moment = stretch.1.map(|window| self.windows[window].moment);
                 let measure = Some(Measure::long(Span::from_fs(length(stretch))));
                 self.fact(Self::subject(Kind::Never, Some(number), None, moment), true, measure);
             }
         }
-        let broken = sure.iter().any(|it| bad(length(it)));
-        let slack = (bound > 0).then(|| (bound as i64).saturating_sub(i64::try_from(worst).unwrap_or(i64::MAX)));
-        let unresolved = maybe.iter().any(|it| bad(length(it)));
+        let broken = sure.iter().any(bad);
         let answer = match self.open() {
             _ if broken => Answer::Judged { broken, slack },
             Some(reason) => Answer::Not(reason),
-            None if unresolved => Answer::Not(Reason::Unresolved),
+            // it may go on for ever
+            None if self.end() != End::Settled && sure.last().is_some_and(|it| it.2.is_none()) => {
+                Answer::Not(Reason::Oscillating)
+            }
+            None if states.iter().any(|it| it.2.is_none()) => Answer::Not(Reason::Unresolved),
             None => Answer::Judged { broken, slack },
         };
         self.answer(number, answer);
@@ -611,21 +630,21 @@ impl<'a> Slow<'a> {
         let same = |a: &Move, b: &Move| rule.from.net == rule.to.net && a.batch == b.batch;
         let end = self.log.recorder.record.end;
         // (distance, slack, moment) of each pair
-        let mut seen: Vec<(u64, i64, Option<u32>, u64)> = Vec::new();
+        let mut seen: Vec<(u64, i64, Option<u32>)> = Vec::new();
         let (mut spoken_of, mut left) = (false, None);
         if let Some(min) = rule.min {
             for edge in &to {
                 spoken_of = true;
-                let before = from.iter().filter(|it| it.at <= edge.at && !same(it, edge)).map(|it| it.at).max();
+                let before = from.iter().filter(|it| it.batch <= edge.batch && !same(it, edge)).map(|it| it.at).max();
                 if let Some(before) = before {
                     let distance = edge.at - before;
-                    seen.push((distance, short(min, distance), self.moment_of_batch(edge.batch), u64::MAX - distance));
+                    seen.push((distance, short(min, distance), self.moment_of_batch(edge.batch)));
                 }
             }
         }
         if let Some(max) = rule.max {
             for edge in &from {
-                let next = to.iter().filter(|it| it.at >= edge.at && !same(it, edge)).map(|it| it.at).min();
+                let next = to.iter().filter(|it| it.batch >= edge.batch && !same(it, edge)).map(|it| it.at).min();
                 let waited = end - edge.at;
                 let ended = self.end() == End::Settled && !self.stopped() && !self.scenario.circuit.is_input(rule.to.net);
                 let (distance, slack) = match next {
@@ -643,12 +662,12 @@ impl<'a> Slow<'a> {
                     }
                 };
                 spoken_of = true;
-                seen.push((distance, slack, self.moment_of_batch(edge.batch), distance));
+                seen.push((distance, slack, self.moment_of_batch(edge.batch)));
             }
         }
-        for (distance, slack, moment, rank) in &seen {
+        for (distance, slack, moment) in &seen {
             if *slack < 0 {
-                let measure = Measure { rank: *rank, value: *distance };
+                let measure = Measure { rank: slack.unsigned_abs(), value: *distance };
                 self.fact(Self::subject(Kind::Timing, Some(number), None, *moment), true, Some(measure));
             }
         }
@@ -678,13 +697,16 @@ impl<'a> Slow<'a> {
             slack = Some(slack.map_or(this, |slack: i64| slack.min(this)));
             if this < 0 {
                 let moment = self.moment_of_batch(pair[1].batch);
-                let measure = Measure { rank: u64::MAX - width, value: width };
+                let measure = Measure { rank: this.unsigned_abs(), value: width };
                 self.fact(Self::subject(Kind::MinPulse, Some(number), Some(rule.net), moment), true, Some(measure));
             }
         }
         let broken = slack.is_some_and(|slack| slack < 0);
         match self.open() {
             Some(reason) if !broken => self.answer(number, Answer::Not(reason)),
+            None if !broken && moves.windows(2).any(|pair| pair[0].new == Value::X) => {
+                self.answer(number, Answer::Not(Reason::Unresolved));
+            }
             _ if slack.is_none() => {}
             _ => self.answer(number, Answer::Judged { broken, slack }),
         }
@@ -710,7 +732,6 @@ impl<'a> Slow<'a> {
                 End::Oscillating { period, .. } => {
                     let question = self.asked.find(RuleKey::Oscillation, 0, None, moment);
                     let breaks = self.permission(window) == Oscillation::Forbidden;
-                    let question = question.filter(|_| breaks);
                     let subject = Self::subject(Kind::Oscillation, question, None, moment);
                     self.fact(subject, breaks, Some(Measure::long(period)));
                 }
@@ -719,14 +740,6 @@ impl<'a> Slow<'a> {
                     self.fact(Self::subject(Kind::Unresolved, None, None, moment), false, None);
                 }
                 _ => {}
-            }
-            let power_up = matches!(
-                self.scenario.stimulus.moments[window.moment as usize].kind,
-                MomentKind::PowerUp
-            );
-            if !window.began_at_rest && !power_up {
-                let question = self.asked.find(RuleKey::BeforeRest, 0, None, moment);
-                self.fact(Self::subject(Kind::BeforeRest, question, None, moment), question.is_some(), None);
             }
         }
         for it in &self.log.recorder.record.swallowed {
@@ -743,19 +756,27 @@ impl<'a> Slow<'a> {
     }
 }
 
+/// More than the one change, or none, that is wanted.
+fn is_glitch(before: Value, moves: &[Move]) -> bool {
+    let after = moves.last().map_or(before, |it| it.new);
+    moves.len() > usize::from(after != before)
+}
+
 /// What is left of some transitions when pulses shorter than the bound are struck out, narrowest first, at equal width
-/// the earlier.
-pub fn strike_out(times: &[u64], bound: u64) -> Vec<u64> {
-    let mut left = times.to_vec();
-    loop {
-        let narrowest = (1..left.len()).min_by_key(|it| (left[*it] - left[*it - 1], *it));
-        match narrowest {
-            Some(it) if left[it] - left[it - 1] < bound => {
-                left.drain(it - 1..=it);
-            }
-            _ => return left,
+/// the earlier; and the widest pulse that must go before it is no glitch.
+fn strike_out(before: Value, moves: &[Move], bound: u64) -> (Vec<Move>, Option<u64>) {
+    let mut left = moves.to_vec();
+    let (mut kept, mut widest) = (None, None);
+    while is_glitch(before, &left) {
+        let width = |it: usize| left[it].at - left[it - 1].at;
+        let narrowest = (1..left.len()).min_by_key(|it| (width(*it), *it)).expect("a glitch has a pulse");
+        if width(narrowest) >= bound && kept.is_none() {
+            kept = Some(left.clone());
         }
+        widest = Some(width(narrowest));
+        left.drain(narrowest - 1..=narrowest);
     }
+    (kept.unwrap_or(left), widest)
 }
 
 /// The nets of loops that changed in a window, batch by batch.
