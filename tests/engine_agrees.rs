@@ -59,7 +59,7 @@ impl Met {
 }
 
 /// The case in full, for the message of a failure.
-fn print(scenario: &Scenario, rest: &Bits, instance: &Instance) -> String {
+pub fn print(scenario: &Scenario, rest: &Bits, instance: &Instance) -> String {
     let circuit = &scenario.circuit;
     let name = |net: &NetId| circuit.name(*net).to_string();
     let mut text = format!("begin {:?}, limits {:?}\ninputs", scenario.begin, scenario.limits);

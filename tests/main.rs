@@ -7,6 +7,7 @@ mod draws;
 mod engine_agrees;
 mod engine_properties;
 mod golden;
+mod judges_agree;
 mod malformed;
 mod outside;
 mod support;

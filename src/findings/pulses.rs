@@ -26,6 +26,7 @@ const ENDLESS: Span = Span::from_fs(u64::MAX);
 pub struct Pulses {
     bound: Span,
     transitions: u64,
+    first: Time,
     last: Time,
     stack: Vec<Pulse>,
     left: Left,
@@ -57,7 +58,20 @@ impl Pulses {
     /// Pulses shorter than `bound` are struck out; 0 strikes none.
     pub fn new(bound: Span) -> Pulses {
         let stack = if bound == Span::ZERO { Vec::new() } else { Vec::with_capacity(KEPT + 4) };
-        Pulses { bound, transitions: 0, last: Time::ZERO, stack, left: Left::default(), widest_struck: None }
+        Pulses {
+            bound,
+            transitions: 0,
+            first: Time::ZERO,
+            last: Time::ZERO,
+            stack,
+            left: Left::default(),
+            widest_struck: None,
+        }
+    }
+
+    /// Pulses of any width are struck out.
+    pub fn all() -> Pulses {
+        Pulses::new(Span::from_fs(u64::MAX - 1))
     }
 
     /// A window begins.
@@ -78,9 +92,16 @@ impl Pulses {
             } else {
                 self.push(pulse);
             }
+        } else {
+            self.first = at;
         }
         self.transitions += 1;
         self.last = at;
+    }
+
+    /// From the first transition to the last, if there were any.
+    pub fn whole(&self) -> Option<Span> {
+        (self.transitions > 0).then(|| self.last.since(self.first))
     }
 
     /// The widest pulse struck out.

@@ -4,5 +4,6 @@
 pub mod random_worlds;
 pub mod recorder;
 pub mod slow_engine;
+pub mod slow_judge;
 pub mod slow_recurrence;
 pub mod world;

@@ -23,6 +23,8 @@ pub struct Kind {
     pub clocks: bool,
     pub limits: &'static [u64],
     pub rings: bool,
+    /// Gates that make a row of pulses of every change of an input, and steps that mostly wait for rest.
+    pub hazards: bool,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -102,6 +104,22 @@ fn ring(world: &mut World, rng: &mut ChaCha8Rng, name: &str, lengths: Lengths) -
     format!("{name}0")
 }
 
+/// A chain of buffers behind an input, and a parity over some of its taps: as many pulses as there are taps.
+fn pulses(world: &mut World, rng: &mut ChaCha8Rng, lengths: Lengths) {
+    let mut taps = vec![world.inputs.choose(rng).unwrap().0.clone()];
+    for i in 0..rng.random_range(1..=5) {
+        let (rise, fall) = (lengths.draw(rng) + lengths.draw(rng), lengths.draw(rng) + lengths.draw(rng));
+        let pin = taps.last().unwrap().clone();
+        world.gate_edges(&format!("p{i}"), Function::Buf, &[&pin], rise, fall);
+        taps.push(format!("p{i}"));
+    }
+    taps.retain(|_| rng.random_bool(0.8));
+    let mut pins: Vec<&str> = taps.iter().map(String::as_str).collect();
+    pins.resize(pins.len().max(2), "p0");
+    let function = [Function::Xor, Function::Xnor].choose(rng).unwrap().clone();
+    world.gate("p", function, &pins, 1);
+}
+
 fn world(rng: &mut ChaCha8Rng, kind: Kind) -> World {
     let mut world = World::new();
     for i in 0..rng.random_range(1..=4) {
@@ -129,6 +147,9 @@ fn world(rng: &mut ChaCha8Rng, kind: Kind) -> World {
             let delay = kind.delays.draw(rng);
             world.gate("c", Function::Xor, &[&a, &b], delay);
         }
+    }
+    if kind.hazards {
+        pulses(&mut world, rng, kind.delays);
     }
     for gate in &mut world.gates {
         gate.filter = match kind.filters {
@@ -185,7 +206,9 @@ fn clock_and_steps(world: &mut World, rng: &mut ChaCha8Rng, kind: Kind, clocks: 
     let (mut by_time, mut earliest, mut skew_before) = (true, 0, 0);
     for _ in 0..rng.random_range(kind.steps.0..=kind.steps.1) {
         let wait = if rng.random_bool(0.3) { 0 } else { rng.random_range(0..=4) * lengths.draw(rng) };
+        let patient = kind.hazards && rng.random_bool(0.7);
         let place = match rng.random_range(0..4) {
+            _ if patient => Place::Rest(fs(wait)),
             0 if by_time => Place::At(exact(earliest + wait)),
             0 | 1 => Place::Rest(fs(wait)),
             _ => Place::After(exact(skew_before + wait)),
@@ -223,6 +246,7 @@ pub const PLAIN: Kind = Kind {
     clocks: false,
     limits: &[7, 40, 300, 2000],
     rings: false,
+    hazards: false,
 };
 
 /// One random case.

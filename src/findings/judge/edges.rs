@@ -139,7 +139,7 @@ impl Timing {
                     let slack = slack.min(-1);
                     self.score.add(slack);
                     late(breach(Kind::Timing, self.question, self.to.net, moment, slack, from, at));
-                } else if end != End::Settled {
+                } else if end != End::Settled && !self.to_is_input {
                     open = open.or(Some(reason_of(end)));
                 }
             }
@@ -164,6 +164,8 @@ pub(super) struct MinPulse {
     pub bounds: [Option<Span>; 2],
     pub question: u32,
     last: Option<Time>,
+    /// The present level came from X: it may be older than it looks.
+    from_unknown: bool,
     unresolved: bool,
     score: Score,
 }
@@ -175,29 +177,41 @@ impl MinPulse {
             bounds: [rule.low, rule.high],
             question,
             last: None,
+            from_unknown: false,
             unresolved: false,
             score: Score::default(),
         }
     }
 
     pub(super) fn start(&mut self) {
-        (self.last, self.unresolved, self.score) = (None, false, Score::default());
+        (self.last, self.from_unknown, self.unresolved, self.score) = (None, false, false, Score::default());
     }
 
-    pub(super) fn change(&mut self, at: Time, old: Value, moment: Option<u32>, late: &mut impl FnMut(Fact)) {
+    pub(super) fn change(
+        &mut self,
+        at: Time,
+        old: Value,
+        new: Value,
+        moment: Option<u32>,
+        late: &mut impl FnMut(Fact),
+    ) {
         if let Some(from) = self.last.replace(at) {
             match old.known() {
                 None => self.unresolved = true,
                 Some(level) => {
                     if let Some(bound) = self.bounds[usize::from(level)] {
                         let slack = at.since(from).fs() as i64 - bound.fs() as i64;
-                        if self.score.add(slack) {
+                        if slack < 0 && (self.from_unknown || new == Value::X) {
+                            // it may be longer than the part of it that is known
+                            self.unresolved = true;
+                        } else if self.score.add(slack) {
                             late(breach(Kind::MinPulse, self.question, self.net, moment, slack, from, at));
                         }
                     }
                 }
             }
         }
+        self.from_unknown = old == Value::X;
     }
 
     pub(super) fn finish(&mut self, unseen: Option<Reason>, sink: &mut impl Sink) {

@@ -40,8 +40,10 @@ pub struct Judge<S> {
     pub sink: S,
     inputs: u32,
     at_rest: bool,
-    /// What is said of oscillation in the window of each moment.
+    /// What is said of oscillation at each moment.
     oscillation: Vec<Oscillation>,
+    /// Moments whose step says it itself.
+    own_oscillation: Vec<bool>,
     required: Option<u32>,
     race_questions: Vec<u32>,
     oscillation_questions: Vec<u32>,
@@ -67,6 +69,9 @@ pub struct Judge<S> {
     timing_dirty: bool,
 
     moment: Option<u32>,
+    /// The moments that say what is asked of oscillation in this window: those of steps that say it themselves, else
+    /// the one that names the window.
+    oscillation_of: Vec<u32>,
     reached: Vec<bool>,
     reached_count: usize,
     values: State,
@@ -120,6 +125,8 @@ impl<S: Sink> Judge<S> {
                 window: None,
                 before: Value::X,
                 pulses: Pulses::new(rule.map_or(Span::ZERO, |i| rules.glitch_free[i].shorter_than)),
+                all: Pulses::all(),
+                unknown: false,
             });
             let questions = by_rule(RuleKey::SettleWithin, 0, Some(*net));
             let bound_of = |q: &u32| asked.questions.get(*q as usize).and_then(|q| q.bound).unwrap_or_default();
@@ -160,6 +167,7 @@ impl<S: Sink> Judge<S> {
                     question: asked.find(RuleKey::Edges, 0, Some(wanted.net), Some(moment)).unwrap_or(NONE),
                     window: None,
                     transitions: 0,
+                    unknown: false,
                 });
             }
             if let Some(expect) = &step.expect {
@@ -238,17 +246,16 @@ impl<S: Sink> Judge<S> {
             flat.extend(list);
             ear_start.push(flat.len() as u32);
         }
-        let oscillation = stimulus
-            .moments
-            .iter()
-            .map(|moment| stimulus.step_of(moment).and_then(|step| step.oscillation).unwrap_or(rules.oscillation))
-            .collect();
+        let said = stimulus.moments.iter().map(|moment| stimulus.step_of(moment).and_then(|step| step.oscillation));
+        let own_oscillation = said.clone().map(|own| own.is_some()).collect();
+        let oscillation = said.map(|own| own.unwrap_or(rules.oscillation)).collect();
         let references = asked.questions.iter().enumerate().filter(|(_, q)| q.rule == RuleKey::Reference);
         Judge {
             sink,
             inputs: circuit.input_count() as u32,
             at_rest,
             oscillation,
+            own_oscillation,
             required: asked.find(RuleKey::Oscillation, 0, None, None),
             race_questions: by_rule(RuleKey::CriticalRace, 0, None),
             oscillation_questions: by_rule(RuleKey::Oscillation, 0, None),
@@ -274,6 +281,7 @@ impl<S: Sink> Judge<S> {
             never_dirty: false,
             timing_dirty: false,
             moment: None,
+            oscillation_of: Vec::new(),
             reached: vec![false; moments],
             reached_count: 0,
             values: State::zeros(circuit.net_count()),
@@ -291,14 +299,14 @@ impl<S: Sink> Judge<S> {
         }
     }
 
-    /// Is an oscillation in the window of this moment allowed or wanted, so that nothing else is asked of it?
-    fn spares(&self, moment: u32) -> bool {
-        self.oscillation[moment as usize] != Oscillation::Forbidden
+    /// Is an oscillation in this window allowed or wanted, so that nothing else is asked of it?
+    fn spares(&self) -> bool {
+        self.oscillation_of.iter().all(|moment| self.oscillation[*moment as usize] != Oscillation::Forbidden)
     }
 
     /// Ends the windows of nets that `touched` says, as things stood when the last whole window ended.
     fn close_nets(&mut self, state: &State, touched: impl Fn(&Cone) -> bool) {
-        let spared = self.moment.is_some_and(|moment| self.spares(moment));
+        let spared = self.spares();
         let shut = Shut { end: self.shut, pending: &self.pending };
         let sink = &mut self.sink;
         for watch in self.watches.iter_mut().filter(|it| it.window.is_some() && touched(&it.cone)) {
@@ -342,8 +350,7 @@ impl<S: Sink> Judge<S> {
             }
         }
         for count in self.counts.iter_mut().filter(|count| opening.moments.contains(&count.moment)) {
-            count.window = Some(NetWindow::open(count.moment, &count.cone, opening));
-            count.transitions = 0;
+            count.open(NetWindow::open(count.moment, &count.cone, opening), opening.state);
         }
         for expect in self.expects.iter_mut().filter(|expect| opening.moments.contains(&expect.moment)) {
             expect.window = Some(NetWindow::open(expect.moment, &expect.cone, opening));
@@ -359,54 +366,69 @@ impl<S: Sink> Judge<S> {
     fn judge_window(&mut self, closing: &Closing<'_>) {
         let moment = closing.moment;
         let m = moment as usize;
+        let spared = self.spares();
         let sink = &mut self.sink;
         let unresolved = closing.end == End::Settled && closing.state.has_unknown();
-        let fact = |kind: Kind, question: u32, breaks_rule: bool, measure: Option<Measure>| Fact {
-            subject: Subject {
-                kind,
-                shape: None,
-                question: Some(question).filter(|question| *question != NONE),
-                net: None,
-                moment: Some(moment),
-            },
-            breaks_rule,
-            measure,
+        let subject = |kind: Kind, question: u32| Subject {
+            kind,
+            shape: None,
+            question: Some(question).filter(|question| *question != NONE),
+            net: None,
+            moment: Some(moment),
+        };
+        let listed = |kind: Kind| Fact {
+            subject: subject(kind, NONE),
+            breaks_rule: false,
+            measure: None,
             place: Some((closing.start, closing.at)),
         };
 
-        let question = self.oscillation_questions[m];
-        let said = self.oscillation[m];
-        match closing.end {
-            End::Oscillating { period, .. } => {
-                let broken = said == Oscillation::Forbidden;
-                if question != NONE {
+        let mut oscillates = matches!(closing.end, End::Oscillating { .. });
+        for said_at in &self.oscillation_of {
+            let question = self.oscillation_questions[*said_at as usize];
+            let said = self.oscillation[*said_at as usize];
+            let fact = |broken: bool, measure: Option<Measure>| Fact {
+                subject: Subject { moment: Some(*said_at), ..subject(Kind::Oscillation, question) },
+                breaks_rule: broken,
+                measure,
+                place: Some((closing.start, closing.at)),
+            };
+            match closing.end {
+                End::Oscillating { period, .. } => {
+                    let broken = said == Oscillation::Forbidden;
+                    if question != NONE {
+                        sink.judged(question, broken, None);
+                    }
+                    // one that breaks nothing is listed once
+                    if broken || oscillates {
+                        sink.fact(fact(broken, Some(Measure::long(period))));
+                    }
+                    oscillates = false;
+                }
+                _ if question == NONE => {}
+                _ if !closing.began_at_rest => sink.not_judged(question, Reason::BeganBeforeRest),
+                End::Settled => {
+                    let broken = said == Oscillation::Required;
                     sink.judged(question, broken, None);
+                    if broken {
+                        sink.fact(fact(true, None));
+                    }
                 }
-                sink.fact(fact(Kind::Oscillation, question, broken, Some(Measure::long(period))));
+                end => sink.not_judged(question, states::reason_of(end)),
             }
-            _ if question == NONE => {}
-            _ if !closing.began_at_rest => sink.not_judged(question, Reason::BeganBeforeRest),
-            End::Settled => {
-                let broken = said == Oscillation::Required;
-                sink.judged(question, broken, None);
-                if broken {
-                    sink.fact(fact(Kind::Oscillation, question, true, None));
-                }
-            }
-            end => sink.not_judged(question, states::reason_of(end)),
         }
         if let End::Unsettled(_) = closing.end {
-            sink.fact(fact(Kind::Unsettled, NONE, false, None));
+            sink.fact(listed(Kind::Unsettled));
         }
         if unresolved {
-            sink.fact(fact(Kind::Unresolved, NONE, false, None));
+            sink.fact(listed(Kind::Unresolved));
         }
 
         let question = self.race_questions[m];
         if question != NONE {
             match closing.end {
                 _ if !closing.began_at_rest => sink.not_judged(question, Reason::BeganBeforeRest),
-                End::Oscillating { .. } if said != Oscillation::Forbidden => {}
+                End::Oscillating { .. } if spared => {}
                 End::Settled if unresolved => sink.not_judged(question, Reason::Unresolved),
                 End::Settled => sink.judged(question, false, None),
                 end => sink.not_judged(question, states::reason_of(end)),
@@ -458,6 +480,7 @@ impl<S: Sink> Observer for Judge<S> {
 
     fn start(&mut self, state: &State) {
         self.moment = None;
+        self.oscillation_of.clear();
         self.reached.fill(false);
         self.reached_count = 0;
         self.values.copy_from(state);
@@ -525,6 +548,11 @@ impl<S: Sink> Observer for Judge<S> {
             }
         }
         self.moment = opening.moments.first().copied();
+        self.oscillation_of.clear();
+        self.oscillation_of.extend(opening.moments.iter().filter(|moment| self.own_oscillation[**moment as usize]));
+        if self.oscillation_of.is_empty() {
+            self.oscillation_of.extend(self.moment);
+        }
         self.has_before = opening.at_rest && !opening.state.has_unknown();
         if self.has_before {
             self.before.copy_from(opening.state);
@@ -548,16 +576,16 @@ impl<S: Sink> Observer for Judge<S> {
         self.values.set(n, new);
         for ear in &self.ears[first..last] {
             match *ear {
-                Ear::Watch(i) => self.watches[i as usize].pulses.change(at),
+                Ear::Watch(i) => self.watches[i as usize].change(at, new),
                 Ear::Settle(i) => self.settles[i as usize].last = Some(at),
-                Ear::Count(i) => self.counts[i as usize].transitions += 1,
+                Ear::Count(i) => self.counts[i as usize].change(new),
                 Ear::Never { test, entry } => {
                     self.nevers[test as usize].change(entry, old, new);
                     self.never_dirty = true;
                 }
                 Ear::MinPulse(i) => {
                     let late = &mut self.late;
-                    self.min_pulses[i as usize].change(at, old, self.moment, &mut |fact| keep_worst(late, fact));
+                    self.min_pulses[i as usize].change(at, old, new, self.moment, &mut |fact| keep_worst(late, fact));
                 }
                 Ear::Timing(i) => {
                     self.timings[i as usize].change(net, new);

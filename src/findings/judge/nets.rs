@@ -3,7 +3,7 @@
 use super::sink::Sink;
 use super::span::{Cone, NetWindow, Shut};
 use crate::circuit::NetId;
-use crate::findings::pulses::{Left, Pulses};
+use crate::findings::pulses::Pulses;
 use crate::findings::{Fact, Kind, Measure, Reason, Shape, Subject};
 use crate::logic::{State, Value};
 use crate::scenario::EdgeCount;
@@ -30,6 +30,10 @@ pub(super) struct Watch {
     pub window: Option<NetWindow>,
     pub before: Value,
     pub pulses: Pulses,
+    /// The same with no bound, for the margin; heard only where there is a bound.
+    pub all: Pulses,
+    /// The net was X at some time in the window.
+    pub unknown: bool,
 }
 
 impl Watch {
@@ -37,6 +41,23 @@ impl Watch {
         self.window = Some(window);
         self.before = state.get(self.net.index());
         self.pulses.clear();
+        self.all.clear();
+        self.unknown = self.before == Value::X;
+    }
+
+    #[inline]
+    pub(super) fn change(&mut self, at: Time, new: Value) {
+        self.pulses.change(at);
+        if self.bound > Span::ZERO {
+            self.all.change(at);
+        }
+        self.unknown |= new == Value::X;
+    }
+
+    /// Whatever an X hides: if all that the net did is shorter than the bound, nothing of it counts.
+    fn hidden(&self, after: Value) -> Option<Span> {
+        let whole = self.pulses.whole().filter(|whole| *whole < self.bound);
+        whole.filter(|_| self.unknown && self.before != Value::X && after != Value::X)
     }
 
     /// `spared`: an oscillation in this window is allowed, and nothing is asked of it.
@@ -44,9 +65,9 @@ impl Watch {
         let Some(window) = self.window.take() else { return };
         let question = asked(&self.questions, window.moment);
         let after = state.get(self.net.index());
-        let obstacle = window
-            .obstacle(&self.cone, shut)
-            .or((self.before == Value::X || after == Value::X).then_some(Reason::Unresolved));
+        let hidden = self.hidden(after);
+        let unresolved = self.unknown && hidden.is_none();
+        let obstacle = window.obstacle(&self.cone, shut).or(unresolved.then_some(Reason::Unresolved));
         match obstacle {
             Some(Reason::Oscillating) if spared => return,
             Some(reason) => {
@@ -57,6 +78,12 @@ impl Watch {
             }
             None => {}
         }
+        if let Some(whole) = hidden {
+            if let Some(question) = question {
+                sink.judged(question, false, Some(self.bound.fs() as i64 - whole.fs() as i64));
+            }
+            return;
+        }
         let left = self.pulses.finish();
         let shape = match (self.before, after) {
             _ if left.pulses == 0 => None,
@@ -66,7 +93,10 @@ impl Watch {
             _ => None,
         };
         if let Some(question) = question {
-            sink.judged(question, shape.is_some(), self.slack(&left));
+            let slack = self.slack();
+            // as wide as the bound is too wide
+            let slack = if shape.is_some() { slack.map(|slack| slack.min(-1)) } else { slack };
+            sink.judged(question, shape.is_some(), slack);
         }
         if let (Some(shape), Some(pulse)) = (shape, left.narrowest) {
             sink.fact(Fact {
@@ -84,12 +114,13 @@ impl Watch {
         }
     }
 
-    /// How far the widest pulse is from breaking the rule, where pulses are tolerated.
-    fn slack(&self, left: &Left) -> Option<i64> {
+    /// How far the bound is above the widest pulse that it must strike out, where pulses are tolerated.
+    fn slack(&mut self) -> Option<i64> {
         if self.bound == Span::ZERO {
             return None;
         }
-        let widest = left.widest.or(self.pulses.widest_struck())?;
+        let left = self.all.finish();
+        let widest = left.widest.max(self.all.widest_struck())?;
         Some(self.bound.fs() as i64 - widest.fs() as i64)
     }
 }
@@ -149,12 +180,27 @@ pub(super) struct Count {
     pub question: u32,
     pub window: Option<NetWindow>,
     pub transitions: u64,
+    /// The net was X at some time in the window.
+    pub unknown: bool,
 }
 
 impl Count {
+    pub(super) fn open(&mut self, window: NetWindow, state: &State) {
+        self.window = Some(window);
+        self.transitions = 0;
+        self.unknown = state.get(self.wanted.net.index()) == Value::X;
+    }
+
+    #[inline]
+    pub(super) fn change(&mut self, new: Value) {
+        self.transitions += 1;
+        self.unknown |= new == Value::X;
+    }
+
     pub(super) fn close(&mut self, shut: &Shut<'_>, sink: &mut impl Sink) {
         let Some(window) = self.window.take() else { return };
-        if let Some(reason) = window.obstacle(&self.cone, shut) {
+        let unresolved = self.unknown.then_some(Reason::Unresolved);
+        if let Some(reason) = window.obstacle(&self.cone, shut).or(unresolved) {
             return sink.not_judged(self.question, reason);
         }
         let wanted = u64::from(self.wanted.least)..=u64::from(self.wanted.most);

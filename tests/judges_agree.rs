@@ -1,0 +1,410 @@
+//! The judges say of every run what the slow judge says of its complete record, on thousands of random small scenarios
+//! with random rules.
+
+use std::collections::{BTreeMap, BTreeSet, HashMap};
+use std::sync::Arc;
+
+use rand::seq::IndexedRandom;
+use rand::{RngExt, SeedableRng};
+use rand_chacha::ChaCha8Rng;
+use stillgate::circuit::NetId;
+use stillgate::control::Control;
+use stillgate::engine::{End, Program};
+use stillgate::findings::{Asked, Fact, Judge, Reason, Seen, Sink};
+use stillgate::instance::{Instance, Which};
+use stillgate::logic::{State, Value};
+use stillgate::scenario::{
+    Alternative, Before, EdgeCount, EdgeKind, EdgeSpec, Expectation, GlitchFree, Mark, MinPulse, Never, NeverAtRest,
+    Oscillation, Permission, RefNet, Reference, Rules, Scenario, Swallowed, Timing,
+};
+use stillgate::time::Span;
+
+use crate::engine_agrees::print;
+use crate::support::random_worlds::{Case, Filters, Kind as Worlds, Lengths, PLAIN, Start, cases};
+use crate::support::slow_judge::{self, Answer, Found, Log, Said};
+use crate::support::world::fs;
+
+/// Takes what the judges say of one run, and sees that each thing is said once.
+#[derive(Debug, Default)]
+struct Heard {
+    said: Said,
+    reached: Vec<(u32, bool)>,
+    windows: Vec<HeardWindow>,
+}
+
+#[derive(Debug)]
+struct HeardWindow {
+    moment: u32,
+    before: Option<State>,
+    began_at_rest: bool,
+    end: End,
+    state: State,
+    time: u64,
+    order: u64,
+}
+
+impl Heard {
+    fn answer(&mut self, question: u32, answer: Answer) {
+        let before = self.said.answers.insert(question, answer);
+        assert_eq!(before, None, "question {question} answered twice");
+    }
+}
+
+impl Sink for Heard {
+    fn judged(&mut self, question: u32, broken: bool, slack: Option<i64>) {
+        self.answer(question, Answer::Judged { broken, slack });
+    }
+
+    fn not_judged(&mut self, question: u32, reason: Reason) {
+        self.answer(question, Answer::Not(reason));
+    }
+
+    fn fact(&mut self, fact: Fact) {
+        let found = Found { breaks_rule: fact.breaks_rule, worst: fact.measure.into_iter().collect() };
+        let before = self.said.facts.insert(fact.subject, found);
+        assert_eq!(before, None, "{:?} found twice", fact.subject);
+    }
+
+    fn reached(&mut self, moment: u32, named: bool) {
+        self.reached.push((moment, named));
+    }
+
+    fn window(&mut self, window: &Seen<'_>) {
+        self.windows.push(HeardWindow {
+            moment: window.moment,
+            before: window.before.cloned(),
+            began_at_rest: window.began_at_rest,
+            end: window.end,
+            state: window.state.clone(),
+            time: window.time.fs(),
+            order: window.order,
+        });
+    }
+}
+
+/// Short times, so that bounds are met, missed by one, and far away.
+fn bound(rng: &mut ChaCha8Rng, delays: Lengths) -> Span {
+    fs(match delays {
+        Lengths::Ties => rng.random_range(1..=12),
+        Lengths::Short => rng.random_range(1..=90),
+        Lengths::Wide => rng.random_range(1..=250_000),
+    })
+}
+
+fn pattern(rng: &mut ChaCha8Rng, nets: &[NetId]) -> Alternative {
+    let mut chosen: Vec<NetId> = nets.sample(rng, rng.clone().random_range(1..=2)).copied().collect();
+    chosen.sort_unstable();
+    chosen.into_iter().map(|net| (net, rng.random())).collect()
+}
+
+/// Random rules for a scenario, and random clauses for its steps.
+fn add_rules(scenario: &mut Scenario, rng: &mut ChaCha8Rng, delays: Lengths) {
+    let nets: Vec<NetId> = scenario.circuit.nets().collect();
+    let gates: Vec<NetId> = scenario.circuit.gates().map(|gate| scenario.circuit.net_of(gate)).collect();
+    let mut rules = Rules::default();
+    for _ in 0..rng.random_range(0..=2) {
+        let longer_than = if rng.random() { fs(0) } else { bound(rng, delays) };
+        rules.never.push(Never { name: None, state: pattern(rng, &nets), longer_than, mark: Mark(0) });
+    }
+    for _ in 0..rng.random_range(0..=2) {
+        rules.never_at_rest.push(NeverAtRest { name: None, state: pattern(rng, &nets), mark: Mark(0) });
+    }
+    for _ in 0..rng.random_range(0..=3) {
+        let edge = |rng: &mut ChaCha8Rng| EdgeSpec {
+            net: *nets.choose(rng).unwrap(),
+            edge: *[EdgeKind::Rise, EdgeKind::Fall, EdgeKind::Any].choose(rng).unwrap(),
+        };
+        let from = edge(rng);
+        let to = match rng.random_range(0..4) {
+            0 => from,
+            1 => EdgeSpec { net: from.net, ..edge(rng) },
+            _ => edge(rng),
+        };
+        let bounds = [bound(rng, delays), bound(rng, delays)];
+        let (min, max) = match rng.random_range(0..3) {
+            0 => (Some(bounds[0]), None),
+            1 => (None, Some(bounds[0])),
+            _ => (Some(bounds[0].min(bounds[1])), Some(bounds[0].max(bounds[1]))),
+        };
+        rules.timing.push(Timing { name: None, from, to, min, max, mark: Mark(0) });
+    }
+    for net in nets.sample(rng, rng.clone().random_range(0..=2)) {
+        let bounds = [Some(bound(rng, delays)), Some(bound(rng, delays))];
+        let [high, low] = *[bounds, [bounds[0], None], [None, bounds[0]]].choose(rng).unwrap();
+        rules.min_pulse.push(MinPulse { net: *net, high, low, mark: Mark(0) });
+    }
+    for net in gates.sample(rng, rng.clone().random_range(0..=2)) {
+        let shorter_than = if rng.random() { fs(0) } else { bound(rng, delays) };
+        rules.glitch_free.push(GlitchFree { net: *net, shorter_than, mark: Mark(0) });
+    }
+    rules.settle_within = rng.random_bool(0.6).then(|| bound(rng, delays));
+    rules.critical_race = *[Permission::Forbidden, Permission::Allowed].choose(rng).unwrap();
+    let words = [Oscillation::Forbidden, Oscillation::Allowed, Oscillation::Required];
+    rules.oscillation = *words.choose(rng).unwrap();
+    rules.swallowed = match rng.random_range(0..3) {
+        0 => Swallowed::Listed,
+        1 => Swallowed::Forbidden,
+        _ => {
+            let mut at: Vec<NetId> = gates.sample(rng, 2).copied().collect();
+            at.sort_unstable();
+            Swallowed::At(at)
+        }
+    };
+    rules.before_rest = *[Before::Allowed, Before::Forbidden].choose(rng).unwrap();
+    scenario.outputs = gates.sample(rng, 2).copied().collect();
+    let watched: BTreeSet<NetId> =
+        scenario.outputs.iter().copied().chain(rules.glitch_free.iter().map(|rule| rule.net)).collect();
+    scenario.watched = watched.into_iter().collect();
+    for step in &mut Arc::make_mut(&mut scenario.stimulus).steps {
+        if rng.random_bool(0.5) {
+            let alternatives = (0..rng.random_range(1..=2)).map(|_| pattern(rng, &nets)).collect();
+            step.expect = Some(Expectation { alternatives, mark: Mark(0) });
+        }
+        if rng.random_bool(0.4) {
+            let mut at: Vec<NetId> = scenario.watched.sample(rng, 1).copied().collect();
+            at.extend(gates.choose(rng));
+            at.sort_unstable();
+            at.dedup();
+            for net in at {
+                let least = rng.random_range(0..=2);
+                step.edges.push(EdgeCount { net, least, most: least + rng.random_range(0..=1) });
+            }
+        }
+        step.settle_within = rng.random_bool(0.2).then(|| bound(rng, delays));
+        step.oscillation = rng.random_bool(0.3).then(|| *words.choose(rng).unwrap());
+    }
+    if rng.random_bool(0.1) {
+        let compare = scenario.outputs.iter().map(|net| (*net, RefNet(*net))).collect();
+        let circuit = (*scenario.circuit).clone();
+        scenario.reference = Some(Arc::new(Reference { circuit, compare }));
+    }
+    scenario.rules = Arc::new(rules);
+}
+
+/// The rules that one run alone can break.
+const RULES: [&str; 11] = [
+    "never",
+    "never_at_rest",
+    "expect",
+    "oscillation",
+    "glitch_free",
+    "edges",
+    "timing",
+    "min_pulse",
+    "settle_within",
+    "swallowed",
+    "before_rest",
+];
+
+/// How often each thing was met: a comparison that never meets it proves nothing.
+#[derive(Debug, Default)]
+struct Met {
+    runs: usize,
+    judged: BTreeMap<&'static str, usize>,
+    broken: BTreeMap<&'static str, usize>,
+    not_judged: BTreeMap<&'static str, usize>,
+    facts: BTreeMap<&'static str, usize>,
+}
+
+impl Met {
+    fn count(&mut self, asked: &Asked, said: &Said) {
+        self.runs += 1;
+        for (question, answer) in &said.answers {
+            let word = asked.questions[*question as usize].rule.word();
+            match answer {
+                Answer::Judged { broken, .. } => {
+                    *self.judged.entry(word).or_default() += 1;
+                    *self.broken.entry(word).or_default() += usize::from(*broken);
+                }
+                Answer::Not(reason) => *self.not_judged.entry(reason.words()).or_default() += 1,
+            }
+        }
+        for subject in said.facts.keys() {
+            *self.facts.entry(subject.kind.word()).or_default() += 1;
+        }
+    }
+}
+
+fn rules_in_words(scenario: &Scenario, asked: &Asked) -> String {
+    let mut text = format!("outputs {:?} watched {:?}\n{:?}", scenario.outputs, scenario.watched, scenario.rules);
+    for (s, step) in scenario.stimulus.steps.iter().enumerate() {
+        let expect = step.expect.as_ref().map(|it| &it.alternatives);
+        let (within, oscillation) = (step.settle_within, step.oscillation);
+        text += &format!("\nstep {}: expect {expect:?} edges {:?} {within:?} {oscillation:?}", s + 1, step.edges);
+    }
+    for (number, question) in asked.questions.iter().enumerate() {
+        let moment = question.moment.map(|moment| &scenario.stimulus.moments[moment as usize].label);
+        let (rule, net, bound) = (question.rule, question.net, question.bound);
+        let pattern = question.pattern.as_ref().map(|it| it.words(&scenario.circuit));
+        text += &format!("\nquestion {number}: {rule:?} {} {net:?} {pattern:?} {moment:?} {bound:?}", question.index);
+    }
+    text
+}
+
+/// Is the same found? Of several that are equally bad the judges may tell any one.
+fn same(slow: Option<&Found>, fast: Option<&Found>) -> bool {
+    match (slow, fast) {
+        (Some(slow), Some(fast)) => {
+            slow.breaks_rule == fast.breaks_rule
+                && slow.worst.is_empty() == fast.worst.is_empty()
+                && fast.worst.iter().all(|it| slow.worst.contains(it))
+        }
+        _ => slow.is_none() && fast.is_none(),
+    }
+}
+
+/// The first difference, in words.
+fn difference(asked: &Asked, slow: &Said, fast: &Said) -> Option<String> {
+    let mut all = BTreeSet::new();
+    for (number, question) in asked.questions.iter().enumerate() {
+        let number = number as u32;
+        let (slow, fast) = (slow.answers.get(&number), fast.answers.get(&number));
+        if slow != fast {
+            all.insert(format!("{:?} question {number}: slow {slow:?}, fast {fast:?}", question.rule));
+        }
+    }
+    let subjects: BTreeSet<_> = slow.facts.keys().chain(fast.facts.keys()).collect();
+    for subject in subjects {
+        let (slow, fast) = (slow.facts.get(subject), fast.facts.get(subject));
+        if !same(slow, fast) {
+            all.insert(format!("{subject:?}: slow {slow:?}, fast {fast:?}"));
+        }
+    }
+    (!all.is_empty()).then(|| all.into_iter().collect::<Vec<_>>().join("\n"))
+}
+
+/// What is told of windows is what the record holds.
+fn windows_agree(scenario: &Scenario, log: &Log, heard: &Heard, orders: &mut Orders, of: &str) {
+    let record = &log.recorder.record;
+    let reached: Vec<(u32, bool)> = record
+        .windows
+        .iter()
+        .flat_map(|window| window.opening.moments.iter().map(|moment| (*moment, *moment == window.moment)))
+        .collect();
+    assert_eq!(heard.reached, reached, "{of}: moments");
+    assert_eq!(heard.windows.len(), record.windows.len(), "{of}");
+    let values = |state: &State| scenario.circuit.nets().map(|net| state.get(net.index())).collect::<Vec<_>>();
+    for (number, (heard, window)) in heard.windows.iter().zip(&record.windows).enumerate() {
+        let of = format!("{of}, window {number}: {heard:?} of {window:?}");
+        assert_eq!((heard.moment, heard.end), (window.moment, window.end), "{of}");
+        assert_eq!(heard.began_at_rest, window.began_at_rest, "{of}");
+        assert_eq!(values(&heard.state), window.state, "{of}");
+        let known = window.began_at_rest && !window.opening.state.contains(&Value::X);
+        let before = known.then(|| window.opening.state.clone());
+        assert_eq!(heard.before.as_ref().map(values), before, "{of}");
+        match window.end {
+            End::Settled => assert_eq!(Some(heard.time), window.settling, "{of}"),
+            End::Cut => assert_eq!(heard.time, window.stop.saturating_sub(window.settle_from), "{of}"),
+            _ => {}
+        }
+        let order = slow_judge::order(scenario, log, number);
+        let known = orders.by_hash.entry(heard.order).or_insert_with(|| order.clone());
+        assert_eq!(*known, order, "{of}: two orders of one hash");
+        let known = *orders.hash_of.entry(order).or_insert(heard.order);
+        assert_eq!(known, heard.order, "{of}: two hashes of one order");
+    }
+}
+
+/// Orders in which loop nets changed, and their hashes.
+#[derive(Default)]
+struct Orders {
+    by_hash: HashMap<u64, Vec<BTreeSet<NetId>>>,
+    hash_of: HashMap<Vec<BTreeSet<NetId>>, u64>,
+}
+
+/// Compares several runs of one random scenario.
+fn compare(case: &Case, rng: &mut ChaCha8Rng, delays: Lengths, met: &mut Met) {
+    let mut scenario = case.scenario.clone();
+    add_rules(&mut scenario, rng, delays);
+    let asked = Asked::of(&scenario);
+    let program = Program::with_rest(&scenario, &case.rest);
+    let mut judge = Judge::new(&scenario, &asked, Heard::default());
+    let mut orders = Orders::default();
+    for sample in 0..3 {
+        // one judge for all runs: nothing may stay behind from the run before
+        judge.sink = Heard::default();
+        let instance = Instance::of(&scenario, &Which::Sample(sample));
+        program.machine().run(&instance, &Control::default(), &mut judge);
+        let mut log = Log::new(scenario.circuit.net_count());
+        program.machine().run(&instance, &Control::default(), &mut log);
+        let of = format!("{} sample {sample}", case.name);
+        windows_agree(&scenario, &log, &judge.sink, &mut orders, &of);
+        let slow = slow_judge::judge(&scenario, &asked, &log);
+        if let Some(difference) = difference(&asked, &slow, &judge.sink.said) {
+            panic!(
+                "{of}:\n{difference}\n\n{}\n{}\n\n{}",
+                print(&scenario, &case.rest, &instance),
+                rules_in_words(&scenario, &asked),
+                log.in_words()
+            );
+        }
+        met.count(&asked, &slow);
+    }
+}
+
+fn agree(count: u64, kind: Worlds) -> Met {
+    let mut met = Met::default();
+    for (number, case) in cases(count, kind).enumerate() {
+        let mut rng = ChaCha8Rng::seed_from_u64(2);
+        rng.set_stream(number as u64);
+        compare(&case, &mut rng, kind.delays, &mut met);
+    }
+    met
+}
+
+#[test]
+fn from_rest() {
+    let met = agree(10_000, PLAIN);
+    for rule in RULES {
+        assert!(met.judged[rule] > 500 && met.broken[rule] > 20, "{rule} in {met:#?}");
+    }
+    let met = agree(1500, Worlds { delays: Lengths::Wide, gates: (3, 7), ..PLAIN });
+    assert!(met.broken["settle_within"] > 500 && met.broken["timing"] > 500, "{met:#?}");
+}
+
+#[test]
+fn rows_of_pulses() {
+    let kind = Worlds { hazards: true, gates: (0, 3), filters: Filters::Transport, ..PLAIN };
+    let met = agree(5000, kind);
+    assert!(met.broken["glitch_free"] > 500 && met.facts["glitch"] > 1000, "{met:#?}");
+    let met = agree(3000, Worlds { delays: Lengths::Short, ..kind });
+    assert!(met.broken["glitch_free"] > 200 && met.broken["min_pulse"] > 200, "{met:#?}");
+    let met = agree(3000, Worlds { begin: Start::Unknown, filters: Filters::Inertial, ..kind });
+    assert!(met.broken["glitch_free"] > 50 && met.not_judged["unresolved"] > 500, "{met:#?}");
+}
+
+#[test]
+fn wires_filters_and_clocks() {
+    let kind = Worlds { delays: Lengths::Short, filters: Filters::Mixed, wires: 0.2, ..PLAIN };
+    let met = agree(4000, Worlds { clocks: true, ..kind });
+    assert!(met.broken["min_pulse"] > 500 && met.not_judged["cut"] > 1000, "{met:#?}");
+    let met = agree(2000, Worlds { delays: Lengths::Ties, hazards: true, clocks: true, gates: (1, 4), ..kind });
+    assert!(met.broken["glitch_free"] > 50 && met.facts["glitch"] > 200, "{met:#?}");
+}
+
+#[test]
+fn random_starts() {
+    let met = agree(4000, Worlds { begin: Start::Random, clocks: true, ..PLAIN });
+    for rule in RULES {
+        assert!(met.judged[rule] > 200, "{rule} in {met:#?}");
+    }
+    assert!(met.not_judged["oscillating"] > 20 && met.not_judged["unsettled"] > 100, "{met:#?}");
+}
+
+#[test]
+fn unknown_starts() {
+    let kind = Worlds { begin: Start::Unknown, wires: 0.2, ..PLAIN };
+    let met = agree(5000, kind);
+    assert!(met.not_judged["unresolved"] > 1000 && met.facts["unresolved"] > 500, "{met:#?}");
+    let met = agree(1500, Worlds { clocks: true, delays: Lengths::Short, ..kind });
+    assert!(met.not_judged["unresolved"] > 500 && met.judged["min_pulse"] > 100, "{met:#?}");
+}
+
+#[test]
+fn rings() {
+    let kind = Worlds { begin: Start::Random, gates: (2, 4), limits: &[150, 5000], rings: true, ..PLAIN };
+    let met = agree(800, Worlds { clocks: true, ..kind });
+    assert!(met.facts["oscillation"] > 100 && met.not_judged["oscillating"] > 50, "{met:#?}");
+    let met = agree(600, Worlds { delays: Lengths::Short, ..kind });
+    assert!(met.broken["oscillation"] > 50, "{met:#?}");
+}
