@@ -12,3 +12,4 @@ mod malformed;
 mod outside;
 mod support;
 mod sweeping;
+mod verdicts;
