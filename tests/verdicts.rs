@@ -201,7 +201,7 @@ fn x_at_rest_and_limits_make_it_undecided_and_are_named() {
          [limits]\ntransitions = 4\n";
     let seen = review_of(ring);
     assert_eq!(seen.call(), Call::Undecided, "{}", seen.reasons());
-    assert!(seen.reasons().contains("limit"), "{}", seen.reasons());
+    assert!(seen.reasons().contains("limits.transitions"), "{}", seen.reasons());
     let seen = review_of(&ring.replace("transitions = 4", "transitions = 1000"));
     assert_eq!(seen.call(), Call::NoFailureFound, "{}", seen.reasons());
 }

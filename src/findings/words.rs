@@ -164,11 +164,13 @@ pub enum Reason {
     Unresolved,
     /// The program does not analyse it yet.
     NotAnalysedYet,
+    /// There were too many different states to keep and compare.
+    TooManyStates,
 }
 
 impl Reason {
     /// All reasons, in the order in which they are counted.
-    pub const ALL: [Reason; 7] = [
+    pub const ALL: [Reason; 8] = [
         Reason::NotReached,
         Reason::BeganBeforeRest,
         Reason::Oscillating,
@@ -176,6 +178,7 @@ impl Reason {
         Reason::Cut,
         Reason::Unresolved,
         Reason::NotAnalysedYet,
+        Reason::TooManyStates,
     ];
 
     /// The words used in every file and text.
@@ -188,6 +191,7 @@ impl Reason {
             Reason::Cut => "cut",
             Reason::Unresolved => "unresolved",
             Reason::NotAnalysedYet => "not analysed yet",
+            Reason::TooManyStates => "too many different states",
         }
     }
 }

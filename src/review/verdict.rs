@@ -124,7 +124,9 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
     let mut unsettled = Vec::new();
     for window in sweep.windows.iter().filter(|window| window.unsettled > 0) {
         let label = &scenario.stimulus.moments[window.moment as usize].label;
-        unsettled.push(format!("\"{label}\" unsettled at a limit in {} draws", grouped(window.unsettled)));
+        let hits: Vec<&str> = window.hits.iter().map(|(hit, _)| hit.words()).collect();
+        let (hits, draws) = (hits.join(" or "), grouped(window.unsettled));
+        unsettled.push(format!("\"{label}\" did not settle before the limit {hits} in {draws} draws"));
     }
     reasons.extend(unsettled);
     for finding in sweep.findings.iter().filter(|finding| finding.subject.kind == Kind::Unresolved) {

@@ -1,5 +1,6 @@
 //! What a sweep says, in ids and exact times; names and texts are made where results are written.
 
+use crate::engine::Hit;
 use crate::findings::{Question, Reason, Subject};
 use crate::logic::State;
 use crate::scenario::Plan;
@@ -37,6 +38,8 @@ pub struct WindowReport {
     pub settled: u64,
     /// Windows that a limit ended.
     pub unsettled: u64,
+    /// The limits that ended them, with their numbers; only those that did.
+    pub hits: Vec<(Hit, u64)>,
     /// Windows that oscillated.
     pub oscillating: u64,
     /// Windows that the next step ended.
