@@ -39,7 +39,8 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     bundle.add("case.toml", write_instance(&report.instance, &scenario));
     write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
     let broken = report.facts.iter().any(|fact| fact.breaks_rule);
-    Ok(ExitCode::from(u8::from(arguments.strict && broken)))
+    let undecided = !report.not_judged.is_empty() || report.judged == 0;
+    Ok(ExitCode::from(u8::from(arguments.strict && (broken || undecided))))
 }
 
 /// The nets that `--nets` names; `None` for all.

@@ -110,7 +110,9 @@ pub struct Question {
     pub moment: Option<u32>,
     /// Did the user write the rule, or is it a default?
     pub written: bool,
-    /// The bound, where it has one: for `glitch_free` and `never` 0 means none is tolerated.
+    /// Is it the absence of an oscillation that breaks it?
+    pub wants_oscillation: bool,
+    /// The bound, where it has just one: for `glitch_free` and `never` 0 means none is tolerated.
     pub bound: Option<Span>,
 }
 
@@ -132,6 +134,11 @@ pub(super) fn touching<'a>(stimulus: &'a Stimulus, cone: &'a NetSet) -> impl Ite
     moments.filter(|(_, m)| stimulus.inputs_of(m).iter().any(|net| cone.contains(*net))).map(|(i, _)| i as u32)
 }
 
+/// The one bound of two; `None` where both are given, since a margin could be that of either.
+fn only(a: Option<Span>, b: Option<Span>) -> Option<Span> {
+    a.xor(b)
+}
+
 impl Asked {
     /// The questions of a scenario.
     pub fn of(scenario: &Scenario) -> Asked {
@@ -146,6 +153,7 @@ impl Asked {
             pattern: None,
             moment: None,
             written: true,
+            wants_oscillation: false,
             bound: None,
         };
         for (i, never) in rules.never.iter().enumerate() {
@@ -194,7 +202,7 @@ impl Asked {
             }
         }
         if rules.oscillation == Oscillation::Required {
-            questions.push(plain(RuleKey::Oscillation));
+            questions.push(Question { wants_oscillation: true, ..plain(RuleKey::Oscillation) });
         }
         for (m, moment) in stimulus.moments.iter().enumerate() {
             let own = stimulus.step_of(moment).and_then(|step| step.oscillation);
@@ -204,7 +212,9 @@ impl Asked {
             };
             if asked {
                 let written = own.is_some() || rules.oscillation_written;
-                questions.push(Question { moment: Some(m as u32), written, ..plain(RuleKey::Oscillation) });
+                let wants_oscillation = own == Some(Oscillation::Required);
+                let moment = Some(m as u32);
+                questions.push(Question { moment, written, wants_oscillation, ..plain(RuleKey::Oscillation) });
             }
         }
         for (i, rule) in rules.glitch_free.iter().enumerate() {
@@ -229,12 +239,12 @@ impl Asked {
                 index: i as u32,
                 name: rule.name.clone(),
                 pattern: Some(Pattern::Edges(rule.from, rule.to)),
-                bound: rule.min.or(rule.max),
+                bound: only(rule.min, rule.max),
                 ..plain(RuleKey::Timing)
             });
         }
         for (i, rule) in rules.min_pulse.iter().enumerate() {
-            let (index, net, bound) = (i as u32, Some(rule.net), rule.high.or(rule.low));
+            let (index, net, bound) = (i as u32, Some(rule.net), only(rule.high, rule.low));
             questions.push(Question { index, net, bound, ..plain(RuleKey::MinPulse) });
         }
         for net in &scenario.watched {

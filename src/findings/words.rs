@@ -121,6 +121,9 @@ impl Measure {
         Measure { rank: span.fs(), value: span.fs() }
     }
 
+    /// Worse than any time: for ever.
+    pub const ENDLESS: Measure = Measure { rank: u64::MAX, value: u64::MAX };
+
     /// A share p/d of a delay, of which more is worse.
     pub fn share(part: Span, whole: Span) -> Measure {
         let value = ((u128::from(part.fs()) << 53) / u128::from(whole.fs().max(1))) as u64;

@@ -1,7 +1,7 @@
 //! From numbers to the names and words that every output shares.
 
 use crate::circuit::NetId;
-use crate::findings::{Asked, Fact, Kind, Subject};
+use crate::findings::{Asked, Fact, Kind, Measure, Subject};
 use crate::instance::Which;
 pub(super) use crate::review::grouped as count;
 use crate::scenario::{MomentKind, Scenario};
@@ -68,6 +68,7 @@ pub(super) fn worst_of(fact: &Fact) -> Option<Worst> {
     let measure = fact.measure?;
     Some(match fact.subject.kind {
         Kind::Swallowed => Worst::Share(measure.as_share()),
+        _ if measure == Measure::ENDLESS => Worst::Endless,
         _ => Worst::Time(Span::from_fs(measure.value)),
     })
 }

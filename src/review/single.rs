@@ -4,7 +4,7 @@ use super::report::{RunReport, StatesReport};
 use crate::circuit::Circuit;
 use crate::control::Control;
 use crate::engine::{Program, Trace};
-use crate::findings::{Asked, Fact, Judge};
+use crate::findings::{Answers, Asked, Judge};
 use crate::instance::{Instance, Which};
 use crate::scenario::Scenario;
 use crate::statics::StateSet;
@@ -27,14 +27,15 @@ pub fn run_one(
     control: &Control,
 ) -> Option<RunReport> {
     let instance = Instance::of(scenario, &which);
-    let mut observers = (Trace::default(), Judge::new(scenario, asked, Vec::<Fact>::new()));
+    let mut observers = (Trace::default(), Judge::new(scenario, asked, Answers::default()));
     if !program.machine().run(&instance, control, &mut observers) {
         return None;
     }
     let (trace, judge) = observers;
-    let mut facts = judge.sink;
+    let Answers { mut facts, judged, mut not_judged } = judge.sink;
+    not_judged.sort_unstable();
     facts.sort_by_key(|fact| (!fact.breaks_rule, fact.subject.kind, std::cmp::Reverse(fact.measure), fact.subject));
-    Some(RunReport { which, instance, trace, facts })
+    Some(RunReport { which, instance, trace, facts, judged, not_judged })
 }
 
 /// All stable states of a circuit. What a budget or limit cuts is said in the report.

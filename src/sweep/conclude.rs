@@ -9,7 +9,7 @@ use super::stats::clopper_pearson;
 use super::tally::{FactTally, Passage, Tally, WindowTally};
 use crate::delay::Marginal;
 use crate::engine::Hit;
-use crate::findings::{Asked, Kind, Match, Reason, RuleKey, Subject, matches, matches_any};
+use crate::findings::{Asked, Kind, Match, Measure, Reason, RuleKey, Subject, matches, matches_any};
 use crate::logic::State;
 use crate::scenario::{Alternative, Permission, Scenario};
 use crate::time::Span;
@@ -313,6 +313,7 @@ impl Judging<'_> {
             }),
             worst: fact.worst.map(|(measure, _)| match subject.kind {
                 Kind::Swallowed => Worst::Share(measure.as_share()),
+                _ if measure == Measure::ENDLESS => Worst::Endless,
                 _ => Worst::Time(Span::from_fs(measure.value)),
             }),
             tie: None,

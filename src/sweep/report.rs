@@ -146,6 +146,8 @@ pub struct Boards {
 pub enum Worst {
     /// A time.
     Time(Span),
+    /// Longer than any time: it lasts for ever, or what is waited for never comes.
+    Endless,
     /// A share of a delay, 0 to 1.
     Share(f64),
 }

@@ -135,6 +135,7 @@ fn spot(scenario: &Scenario, asked: &Asked, fact: &Fact) -> Option<Spot> {
             Some(format!("period {}", period.rounded()))
         }
         Some(Worst::Time(span)) => Some(span.rounded()),
+        Some(Worst::Endless) => Some("for ever".to_string()),
         Some(Worst::Share(share)) => Some(format!("{} of the delay", words::percent(share))),
         None if fact.subject.kind == Kind::Glitch && to > from => Some(to.since(from).rounded()),
         None => None,
