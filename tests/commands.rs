@@ -157,6 +157,7 @@ fn a_finding_replays_to_the_same_femtosecond() {
     let finding = findings.iter().find(|finding| finding["kind"] == "glitch").unwrap();
     for (sample, exact) in [("worst_sample", true), ("sample", false)] {
         let case = format!("sample:{}", finding[sample]);
+        let case_file = format!("again/case-sample-{}.toml", finding[sample]);
         let output = stillgate(folder.path(), &["run", "--delays", &case, "--json", "--out", "again"]);
         let run: Value = serde_json::from_slice(&output.stdout).unwrap();
         let facts = run["facts"].as_array().unwrap();
@@ -165,13 +166,13 @@ fn a_finding_replays_to_the_same_femtosecond() {
         assert!(!exact || fact["worst"].to_string() == finding["worst"].to_string(), "{fact} {finding}");
 
         // and once more from the file of the case
-        let output = stillgate(folder.path(), &["run", "--delays", "again/case.toml", "--json", "--out", "third"]);
+        let output = stillgate(folder.path(), &["run", "--delays", &case_file, "--json", "--out", "third"]);
         assert!(output.status.success(), "{}", text(&output.stderr));
         let given: Value = serde_json::from_slice(&output.stdout).unwrap();
         assert_eq!(given["waves"], run["waves"], "{case} from its file");
         assert_eq!(
-            std::fs::read(folder.path().join("again/case.toml")).unwrap(),
-            std::fs::read(folder.path().join("third/case.toml")).unwrap(),
+            std::fs::read(folder.path().join(&case_file)).unwrap(),
+            std::fs::read(folder.path().join("third/case-given-case.toml")).unwrap(),
             "written and read back exactly"
         );
     }

@@ -22,6 +22,7 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     if scenario.cannot_run {
         return Err(Failure::Bad(format!("this circuit cannot be run yet: {}", scenario.not_analysed.join("; "))));
     }
+    let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(true, "run");
     let program = program(&scenario, &control)?;
     let asked = Asked::of(&scenario);
@@ -35,9 +36,10 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
         say(&text::run(&scenario, &asked, &report, &page(called(input).as_deref())))?;
     }
     let mut bundle = bundle::of_run(&scenario, &asked, &report, nets);
-    bundle.add("run.json", document);
-    bundle.add("case.toml", write_instance(&report.instance, &scenario));
-    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    let case = bundle::safe(&report.which.words());
+    bundle.add(&format!("run-{case}.json"), document);
+    bundle.add(&format!("case-{case}.toml"), write_instance(&report.instance, &scenario));
+    write(&bundle, &folder, input.quiet || input.json)?;
     let broken = report.facts.iter().any(|fact| fact.breaks_rule);
     let undecided = !report.not_judged.is_empty() || report.judged == 0;
     Ok(ExitCode::from(u8::from(arguments.strict && (broken || undecided))))

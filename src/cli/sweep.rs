@@ -13,6 +13,7 @@ use crate::review;
 pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     let input = &arguments.input;
     let scenario = with_draws(load(input)?, &arguments.draws);
+    let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(input.quiet, "sweep");
     let program = program(&scenario, &control)?;
     let asked = Asked::of(&scenario);
@@ -31,7 +32,7 @@ pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     }
     let mut bundle = bundle::of_sweep(&scenario, &asked, &report);
     bundle.add("sweep.json", document);
-    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    write(&bundle, &folder, input.quiet || input.json)?;
     if control.cancelled() {
         return Ok(ExitCode::from(INTERRUPTED));
     }

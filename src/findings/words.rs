@@ -45,6 +45,27 @@ pub enum Kind {
 }
 
 impl Kind {
+    /// All kinds, most serious first.
+    pub const ALL: [Kind; 17] = [
+        Kind::Never,
+        Kind::NeverAtRest,
+        Kind::Expect,
+        Kind::NotInReference,
+        Kind::CriticalRace,
+        Kind::Oscillation,
+        Kind::Glitch,
+        Kind::Edges,
+        Kind::Timing,
+        Kind::MinPulse,
+        Kind::SettleWithin,
+        Kind::Swallowed,
+        Kind::BeforeRest,
+        Kind::NeverCame,
+        Kind::Unsettled,
+        Kind::Unresolved,
+        Kind::NonCriticalRace,
+    ];
+
     /// The word used in every file and text.
     pub const fn word(self) -> &'static str {
         match self {

@@ -6,7 +6,7 @@ use std::io;
 use std::path::{Path, PathBuf};
 
 use crate::circuit::NetId;
-use crate::findings::{Asked, Subject};
+use crate::findings::{Asked, Kind, Subject};
 use crate::output::waves::{self, Nets, Picture};
 use crate::output::{charts, json, tables, words};
 use crate::review::{Review, RunReport};
@@ -17,6 +17,8 @@ use crate::time::Time;
 pub const MOST_PICTURES: usize = 12;
 /// Of runs with more windows than this only what is around the finding is shown.
 const WHOLE_RUN: usize = 8;
+/// Most cells of a waveform table.
+const MOST_CELLS: u64 = 20_000_000;
 /// Longest part of a file name.
 const PART: usize = 40;
 
@@ -76,7 +78,12 @@ impl Bundle {
             let number = if i == 0 { String::new() } else { format!("-{}", i + 1) };
             self.add(&format!("{stem}{number}.svg"), sheet.svg);
         }
-        self.add(&format!("{stem}.csv"), waves::csv(picture.scenario, &run.trace));
+        let cells = picture.scenario.circuit.net_count() as u64 * run.trace.changes.len() as u64;
+        if cells > MOST_CELLS {
+            self.notes.push(format!("{stem}.csv is left out: it would have {} cells.", words::count(cells)));
+        } else {
+            self.add(&format!("{stem}.csv"), waves::csv(picture.scenario, &run.trace));
+        }
     }
 }
 
@@ -165,7 +172,7 @@ fn stem(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
 }
 
 /// Letters, digits and single dashes; everything else becomes a dash.
-fn safe(text: &str) -> String {
+pub fn safe(text: &str) -> String {
     let mut name = String::new();
     for letter in text.chars() {
         if letter.is_ascii_alphanumeric() {
@@ -191,12 +198,36 @@ fn unique(stem: String, taken: &mut BTreeSet<String>) -> String {
     name
 }
 
+/// Makes the folder, so that a bad place is known before the work is done.
+///
+/// Errors: it cannot be made, or is no folder.
+pub fn prepare(folder: &Path) -> Result<(), WriteError> {
+    fs::create_dir_all(folder).map_err(|source| WriteError::Folder { folder: folder.to_path_buf(), source })
+}
+
+/// Takes pictures of findings out of a folder that an earlier review left there and this one does not have: they would be
+/// taken for findings of this one.
+pub fn clear_pictures(folder: &Path, bundle: &Bundle) {
+    let ours: BTreeSet<&str> = bundle.files.iter().map(|file| file.name.as_str()).collect();
+    let of_a_finding = |name: &str| {
+        let kind = name.strip_prefix("waves-");
+        kind.is_some_and(|rest| Kind::ALL.iter().any(|kind| rest.starts_with(&format!("{}-", safe(kind.word())))))
+    };
+    for entry in fs::read_dir(folder).into_iter().flatten().flatten() {
+        let name = entry.file_name();
+        if let Some(name) = name.to_str().filter(|name| of_a_finding(name) && !ours.contains(name)) {
+            // what cannot be removed is only an old picture
+            let _ = fs::remove_file(folder.join(name));
+        }
+    }
+}
+
 /// Writes files into a folder, which is made if need be. Each file is complete under its name or not there: it is written
 /// beside its place and then moved. Files of the same names are replaced, others left alone.
 ///
 /// Errors: the folder or a file cannot be written; then no file has been moved into place, unless moving itself failed.
 pub fn write(folder: &Path, files: &[File]) -> Result<(), WriteError> {
-    fs::create_dir_all(folder).map_err(|source| WriteError::Folder { folder: folder.to_path_buf(), source })?;
+    prepare(folder)?;
     let beside = |file: &File| folder.join(format!(".{}.part", file.name));
     let done = files.iter().try_for_each(|file| {
         fs::write(beside(file), &file.bytes)

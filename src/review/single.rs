@@ -9,8 +9,10 @@ use crate::instance::{Instance, Which};
 use crate::scenario::Scenario;
 use crate::statics::StateSet;
 
-/// Input vectors whose stable states are listed.
+/// Input vectors whose stable states are listed, at most.
 const VECTORS: usize = 1024;
+/// Values listed in all of them.
+const VALUES: usize = 1 << 20;
 /// Stable states listed for one input vector.
 const STATES: usize = 64;
 /// Rows of the state set that are listed.
@@ -56,10 +58,16 @@ pub fn states(circuit: &Circuit, control: &Control) -> StatesReport {
     report.count = Some(set.count().to_string());
     let rows = set.rows(ROWS);
     (report.rows, report.rows_truncated) = (rows.rows, rows.truncated);
+    let mut left = VALUES;
     let mut vectors = set.by_inputs(VECTORS, STATES);
     report.inputs_truncated = vectors.truncated();
     for vector in &mut vectors {
-        report.inputs_truncated |= vector.truncated;
+        let values = vector.states.len().max(1) * circuit.net_count();
+        report.inputs_truncated |= vector.truncated || values > left;
+        if values > left {
+            break;
+        }
+        left -= values;
         report.inputs.push((vector.inputs, vector.states));
     }
     if let Ok(counts) = set.vector_counts() {
