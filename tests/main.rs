@@ -9,3 +9,4 @@ mod judges_agree;
 mod malformed;
 mod outside;
 mod support;
+mod sweeping;
