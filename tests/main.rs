@@ -11,5 +11,5 @@ mod judges_agree;
 mod malformed;
 mod outside;
 mod support;
-mod sweeping;
+mod sweeps_agree;
 mod verdicts;

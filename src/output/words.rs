@@ -1,12 +1,11 @@
 //! From numbers to the names and words that every output shares.
 
 use crate::circuit::NetId;
-use crate::findings::{Asked, Fact, Kind, Measure, Subject};
+use crate::findings::{Asked, Fact, Subject};
 use crate::instance::Which;
 pub(super) use crate::review::grouped as count;
 use crate::scenario::{MomentKind, Scenario};
 use crate::sweep::{Tie, Worst};
-use crate::time::Span;
 
 /// The label of a moment; `None` at rest before the first step.
 pub(super) fn step(scenario: &Scenario, moment: Option<u32>) -> Option<&str> {
@@ -65,12 +64,7 @@ pub(super) fn subject<'a>(scenario: &'a Scenario, asked: &'a Asked, subject: &Su
 
 /// The measured value of a fact: a time, or a share of a delay.
 pub(super) fn worst_of(fact: &Fact) -> Option<Worst> {
-    let measure = fact.measure?;
-    Some(match fact.subject.kind {
-        Kind::Swallowed => Worst::Share(measure.as_share()),
-        _ if measure == Measure::ENDLESS => Worst::Endless,
-        _ => Worst::Time(Span::from_fs(measure.value)),
-    })
+    fact.measure.map(|measure| Worst::of(fact.subject.kind, measure))
 }
 
 /// The word of a tie in every file.

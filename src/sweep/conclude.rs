@@ -1,6 +1,6 @@
 //! From the integers of a tally to what a sweep says: outcomes, races, shares, intervals, settling figures.
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 
 use super::report::{Boards, Finding, Outcome, RuleReport, Settling, SweepReport, WindowReport, Worst};
 use super::seen::Count;
@@ -9,7 +9,7 @@ use super::stats::clopper_pearson;
 use super::tally::{FactTally, Passage, Tally, WindowTally};
 use crate::delay::Marginal;
 use crate::engine::Hit;
-use crate::findings::{Asked, Kind, Match, Measure, Reason, RuleKey, Subject, matches, matches_any};
+use crate::findings::{Asked, Kind, Match, Reason, RuleKey, Subject, matches, matches_any};
 use crate::logic::State;
 use crate::scenario::{Alternative, Permission, Scenario};
 use crate::time::Span;
@@ -99,6 +99,8 @@ struct Race {
     of: u64,
     critical: Option<Strays>,
     breaks_rule: bool,
+    /// Outcomes of races that break the rule, but for those with an alternative that they need not share.
+    blamed: BTreeSet<State>,
     non_critical: Option<Strays>,
 }
 
@@ -152,7 +154,10 @@ impl Race {
             }
             Strays::join(&mut race.critical, Strays::of(&counts));
             let states: Vec<&State> = outcomes.iter().map(|(passage, _)| &passage.after).collect();
-            race.breaks_rule |= forbidden && !each_has_its_own(&states, &alternatives);
+            if forbidden && !each_has_its_own(&states, &alternatives) {
+                race.breaks_rule = true;
+                race.blamed.extend(without_one_alone(&states, &alternatives).cloned());
+            }
         }
         race
     }
@@ -188,6 +193,15 @@ fn each_has_its_own(states: &[&State], alternatives: &[Alternative]) -> bool {
     (0..states.len()).all(|s| place(s, &fits, &mut taken, &mut vec![false; alternatives.len()]))
 }
 
+/// The states that match no alternative which no other of them matches.
+fn without_one_alone<'a>(states: &[&'a State], alternatives: &[Alternative]) -> impl Iterator<Item = &'a State> {
+    let fits = |a: &Alternative, state: &State| matches(a, state) == Match::Yes;
+    let alone = |a: &&Alternative| states.iter().filter(|state| fits(a, state)).count() == 1;
+    let alone: Vec<&Alternative> = alternatives.iter().filter(alone).collect();
+    let blamed = |state: &&&State| !alone.iter().any(|a| fits(a, state));
+    states.iter().filter(blamed).copied().collect::<Vec<_>>().into_iter()
+}
+
 fn window(scenario: &Scenario, asked: &Asked, moment: u32, tally: &WindowTally, race: &Race) -> WindowReport {
     let alternatives = expected(scenario, moment);
     let forbidden_rest = |state: &State| {
@@ -199,7 +213,7 @@ fn window(scenario: &Scenario, asked: &Asked, moment: u32, tally: &WindowTally, 
     let breaks = |state: &State| {
         (!alternatives.is_empty() && matches_any(&alternatives, state) == Match::No)
             || forbidden_rest(state)
-            || (race.breaks_rule && alternatives.is_empty())
+            || race.blamed.contains(state)
     };
     let mut outcomes: Vec<Outcome> = tally
         .outcomes
@@ -233,15 +247,15 @@ fn settling(settled: &Spread, cut: &Spread) -> Option<Settling> {
     let median = spread::nearest_rank(&parts, 0.5)?;
     let p99 = spread::nearest_rank(&parts, 0.99)?;
     let max = settled.max().max(cut.max())?;
-    // a cut window that was not longer than a figure could have been longer than it
-    let at_least = |figure: Span| cut.min().is_some_and(|shortest| shortest <= figure);
+    // had every cut window gone on for ever, would another be of that rank?
+    let at_least = |share: f64, figure: Span| settled.up_to(figure) < spread::rank(settled.len() + cut.len(), share);
     let exact = settled.is_exact() && cut.is_exact();
     Some(Settling {
         min: settled.min(),
         median,
-        median_at_least: at_least(median),
+        median_at_least: at_least(0.5, median),
         p99,
-        p99_at_least: at_least(p99),
+        p99_at_least: at_least(0.99, p99),
         max,
         max_at_least: !cut.is_empty(),
         resolution: if exact { 0.0 } else { spread::RESOLUTION },
@@ -283,12 +297,12 @@ struct Judging<'a> {
 impl Judging<'_> {
     /// Of how many samples a finding's count is a share.
     fn judged(&self, subject: &Subject) -> u64 {
-        let named = || match subject.moment {
+        let reached = || match subject.moment {
             Some(moment) => self.tally.windows[moment as usize].reached,
             None => self.tally.samples,
         };
         match (subject.kind, subject.question) {
-            (Kind::Swallowed | Kind::Oscillation | Kind::Unsettled | Kind::Unresolved, _) | (_, None) => named(),
+            (Kind::Swallowed, _) | (_, None) => reached(),
             (_, Some(question)) => self.tally.rows[question as usize].judged,
         }
     }
@@ -311,11 +325,7 @@ impl Judging<'_> {
                 failing: fact.boards_failing,
                 worst_share: fact.worst_board.0 as f64 / fact.worst_board.1 as f64,
             }),
-            worst: fact.worst.map(|(measure, _)| match subject.kind {
-                Kind::Swallowed => Worst::Share(measure.as_share()),
-                _ if measure == Measure::ENDLESS => Worst::Endless,
-                _ => Worst::Time(Span::from_fs(measure.value)),
-            }),
+            worst: fact.worst.map(|(measure, _)| Worst::of(subject.kind, measure)),
             tie: None,
             sample: Some(fact.first),
             worst_sample: Some(fact.worst.map_or(fact.first, |(_, sample)| sample)),

@@ -1,7 +1,7 @@
 //! What a sweep says, in ids and exact times; names and texts are made where results are written.
 
 use crate::engine::Hit;
-use crate::findings::{Question, Reason, Subject};
+use crate::findings::{Kind, Measure, Question, Reason, Subject};
 use crate::logic::State;
 use crate::scenario::Plan;
 use crate::time::Span;
@@ -150,6 +150,17 @@ pub enum Worst {
     Endless,
     /// A share of a delay, 0 to 1.
     Share(f64),
+}
+
+impl Worst {
+    /// The value that a measure of this kind of finding stands for.
+    pub fn of(kind: Kind, measure: Measure) -> Worst {
+        match kind {
+            Kind::Swallowed => Worst::Share(measure.as_share()),
+            _ if measure == Measure::ENDLESS => Worst::Endless,
+            _ => Worst::Time(Span::from_fs(measure.value)),
+        }
+    }
 }
 
 /// What exact equality of times has to do with a finding.

@@ -124,6 +124,11 @@ impl Spread {
         self.max.map(Span::from_fs)
     }
 
+    /// How many were not longer than this; of classes, those that begin no later.
+    pub fn up_to(&self, span: Span) -> u64 {
+        self.classes().iter().take_while(|(from, _, _)| *from <= span.fs()).map(|(_, _, count)| count).sum()
+    }
+
     /// Are values kept exactly?
     pub fn is_exact(&self) -> bool {
         self.exact.is_some()
@@ -145,6 +150,11 @@ impl Spread {
     }
 }
 
+/// The nearest rank of a share (0 to 1) of `n` values, from 1.
+pub(super) fn rank(n: u64, share: f64) -> u64 {
+    ((share * n as f64).ceil() as u64).clamp(1, n.max(1))
+}
+
 /// The value of nearest rank `share` (0 to 1) of two spreads taken together, as the lower edge of its class.
 pub(super) fn nearest_rank(parts: &[&Spread], share: f64) -> Option<Span> {
     let n: u64 = parts.iter().map(|part| part.n).sum();
@@ -153,7 +163,7 @@ pub(super) fn nearest_rank(parts: &[&Spread], share: f64) -> Option<Span> {
     }
     let mut together = Spread::new();
     parts.iter().for_each(|part| together.merge(part));
-    let rank = ((share * n as f64).ceil() as u64).clamp(1, n);
+    let rank = rank(n, share);
     let mut below = 0;
     for (from, _, count) in together.classes() {
         below += count;

@@ -265,7 +265,9 @@ impl FactTally {
     fn board(&mut self, failing: u64, tries: u64) {
         self.boards_failing += 1;
         let (worst, of) = self.worst_board;
-        if u128::from(failing) * u128::from(of) > u128::from(worst) * u128::from(tries) {
+        // of equal shares the longer board, so that the order of a merge cannot show
+        let share = u128::from(failing) * u128::from(of);
+        if (share, failing) > (u128::from(worst) * u128::from(tries), worst) {
             self.worst_board = (failing, tries);
         }
     }

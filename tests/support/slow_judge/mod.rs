@@ -170,7 +170,7 @@ pub fn judge(scenario: &Scenario, asked: &Asked, log: &Log) -> Said {
     slow.said
 }
 
-fn shows(values: &[Value], pattern: &Alternative) -> Option<bool> {
+pub fn shows(values: &[Value], pattern: &Alternative) -> Option<bool> {
     let fits = |net: &NetId, bit: bool| values[net.index()].known().map(|value| value == bit);
     let all: Vec<Option<bool>> = pattern.iter().map(|(net, bit)| fits(net, *bit)).collect();
     if all.contains(&Some(false)) {
