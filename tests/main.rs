@@ -10,3 +10,4 @@ mod malformed;
 mod outside;
 mod support;
 mod sweeping;
+mod verdicts;
