@@ -148,6 +148,7 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
     } else if scenario.stimulus.moments.is_empty() {
         reasons.push("there is no step and no clock, so nothing was asked of the block in motion".to_string());
     }
+    reasons.extend(scenario.not_analysed.iter().cloned());
     let mut unsettled = Vec::new();
     for window in sweep.windows.iter().filter(|window| window.unsettled > 0) {
         let label = &scenario.stimulus.moments[window.moment as usize].label;

@@ -54,7 +54,8 @@ pub struct Scenario {
     pub plan: Plan,
     /// What the user should know of the scenario as it was understood, in the order of the file.
     pub notes: Vec<String>,
-    /// What was read and checked but is not analysed yet, in the order of the file; each is a whole sentence.
+    /// What was read and checked but is not analysed yet, in the order of the file; each is a whole sentence. While there
+    /// is any, no verdict is better than undecided.
     pub not_analysed: Vec<String>,
     /// Part of the circuit cannot be simulated yet (a filter): no run takes place.
     pub cannot_run: bool,

@@ -77,6 +77,7 @@ pub struct Builder {
     tries: Said<u64>,
     draw: Marginal,
     not_analysed: Vec<Said<String>>,
+    notes: Vec<Said<String>>,
     faults: Faults,
 }
 
@@ -119,6 +120,7 @@ impl Builder {
             tries: Said::from(plan.tries),
             draw: plan.draw,
             not_analysed: Vec::new(),
+            notes: Vec::new(),
             faults: Faults::default(),
         }
     }
@@ -285,6 +287,12 @@ impl Builder {
         self
     }
 
+    /// Something that the user should know: a whole sentence for the scenario's notes.
+    pub fn note(&mut self, sentence: impl Into<Said<String>>) -> &mut Builder {
+        self.notes.push(sentence.into());
+        self
+    }
+
     /// Faults found elsewhere: [`Builder::finish`] fails with them and its own.
     pub fn faults(&mut self, faults: Faults) -> &mut Builder {
         self.faults.append(faults);
@@ -300,6 +308,7 @@ impl Builder {
         let nets = circuit::names(&self.inputs, &self.gates);
         let mut context = Context::new(nets, self.unit, faults);
         context.not_analysed = std::mem::take(&mut self.not_analysed);
+        context.notes = std::mem::take(&mut self.notes);
 
         let network = circuit::network(&mut context, &self.inputs, &self.gates, 0);
         let delays = delays::model(&mut context, &self, &network);
