@@ -117,17 +117,27 @@ fn ending(scenario: &Scenario, window: &Window) -> Ending {
 
 /// Findings that have a place, by begin.
 pub(super) fn spots(scenario: &Scenario, asked: &Asked, run: &RunReport) -> Vec<Spot> {
-    let mut spots: Vec<Spot> = run.facts.iter().filter_map(|fact| spot(scenario, asked, fact)).collect();
+    let mut spots: Vec<Spot> = run.facts.iter().filter_map(|fact| spot(scenario, asked, run, fact)).collect();
     spots.sort_by_key(|spot| (spot.from, spot.to));
     spots
 }
 
-fn spot(scenario: &Scenario, asked: &Asked, fact: &Fact) -> Option<Spot> {
-    let (from, to) = fact.place?;
+/// Where a finding lies; what is said of a state at rest lies from its step to the last change before that rest.
+fn place(run: &RunReport, fact: &Fact) -> Option<(Time, Time)> {
+    let at_rest = matches!(fact.subject.kind, Kind::Expect | Kind::Edges | Kind::NeverAtRest);
+    let window = run.trace.windows.iter().find(|window| Some(window.moment) == fact.subject.moment);
+    let settled = window.filter(|_| at_rest).map(|it| (it.start, it.settle_from + it.settling.unwrap_or_default()));
+    fact.place.or(settled)
+}
+
+fn spot(scenario: &Scenario, asked: &Asked, run: &RunReport, fact: &Fact) -> Option<Spot> {
+    let (from, to) = place(run, fact)?;
     let named = words::subject(scenario, asked, &fact.subject);
     let word = match (fact.subject.kind, named.rule_name) {
         (Kind::Glitch, _) => named.shape.unwrap_or(named.kind).to_string(),
         (_, Some(name)) => name.to_string(),
+        (Kind::Expect, None) => format!("expected {}", named.pattern.as_deref().unwrap_or_default()),
+        (Kind::Edges, None) => format!("expected {} transitions", named.pattern.as_deref().unwrap_or_default()),
         (kind, None) => kind.word().to_string(),
     };
     let value = match words::worst_of(fact) {

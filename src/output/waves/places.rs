@@ -7,7 +7,7 @@ use crate::output::ink::SMALL;
 use crate::output::measure::{Rows, cut_end, width};
 
 /// A bracket and its label.
-pub(super) const BRACKET: f64 = 18.0;
+pub(super) const BRACKET: f64 = 20.0;
 /// Rows of labels below one lane, and below the axis.
 const LABEL_ROWS: usize = 3;
 /// Marks without a label that are closer than this to the one before are not drawn.
@@ -51,7 +51,7 @@ pub(super) fn brackets(spots: &[&Spot], axis: &Axis, left: f64, y: f64, missing:
             continue;
         }
         let y = y + row.unwrap_or(0) as f64 * BRACKET;
-        let label = row.map(|_| (text, start, y + 14.0));
+        let label = row.map(|_| (text, start, y + 16.5));
         all.push(Bracket { left, right, y, label, title: spot.title.clone(), breaks_rule: spot.breaks_rule });
     }
     (all, rows.len())
