@@ -8,7 +8,11 @@ use serde_json::Value;
 
 /// Runs the program in a folder of its own, so that nothing is left behind elsewhere.
 fn stillgate(folder: &Path, arguments: &[&str]) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_stillgate")).current_dir(folder).args(arguments).output().expect("the program starts")
+    Command::new(env!("CARGO_BIN_EXE_stillgate"))
+        .current_dir(folder)
+        .args(arguments)
+        .output()
+        .expect("the program starts")
 }
 
 fn project(path: &str) -> String {
@@ -132,6 +136,7 @@ fn a_bad_command_line_gives_exit_code_2() {
         &["review", "--draw", "sideways"],
         &["run", "--delays", "sample:x"],
         &["run", "--delays", "no-such-case.toml"],
+        &["run", "--nets", "grene"],
         &[],
     ] {
         let output = stillgate(folder.path(), arguments);
@@ -152,6 +157,7 @@ fn a_finding_replays_to_the_same_femtosecond() {
     let finding = findings.iter().find(|finding| finding["kind"] == "glitch").unwrap();
     for (sample, exact) in [("worst_sample", true), ("sample", false)] {
         let case = format!("sample:{}", finding[sample]);
+        let case_file = format!("again/case-sample-{}.toml", finding[sample]);
         let output = stillgate(folder.path(), &["run", "--delays", &case, "--json", "--out", "again"]);
         let run: Value = serde_json::from_slice(&output.stdout).unwrap();
         let facts = run["facts"].as_array().unwrap();
@@ -160,13 +166,13 @@ fn a_finding_replays_to_the_same_femtosecond() {
         assert!(!exact || fact["worst"].to_string() == finding["worst"].to_string(), "{fact} {finding}");
 
         // and once more from the file of the case
-        let output = stillgate(folder.path(), &["run", "--delays", "again/case.toml", "--json", "--out", "third"]);
+        let output = stillgate(folder.path(), &["run", "--delays", &case_file, "--json", "--out", "third"]);
         assert!(output.status.success(), "{}", text(&output.stderr));
         let given: Value = serde_json::from_slice(&output.stdout).unwrap();
         assert_eq!(given["waves"], run["waves"], "{case} from its file");
         assert_eq!(
-            std::fs::read(folder.path().join("again/case.toml")).unwrap(),
-            std::fs::read(folder.path().join("third/case.toml")).unwrap(),
+            std::fs::read(folder.path().join(&case_file)).unwrap(),
+            std::fs::read(folder.path().join("third/case-given-case.toml")).unwrap(),
             "written and read back exactly"
         );
     }
@@ -201,4 +207,19 @@ fn a_folder_that_cannot_be_made_is_named() {
     let output = stillgate(folder.path(), &["review", "--samples", "10", "--out", "taken/deep"]);
     assert_eq!(output.status.code(), Some(2));
     assert!(text(&output.stderr).contains("taken"), "{}", text(&output.stderr));
+}
+
+#[test]
+fn the_scenario_in_the_readme_is_a_good_one() {
+    let readme = std::fs::read_to_string(project("README.md")).unwrap();
+    let example = readme.split("```toml\n").nth(1).and_then(|rest| rest.split("```").next()).expect("an example");
+    let folder = tempfile::tempdir().unwrap();
+    std::fs::write(folder.path().join("latch.toml"), example).unwrap();
+    let output = stillgate(folder.path(), &["review", "latch.toml", "--samples", "500", "--strict"]);
+    assert!(output.status.success(), "{}{}", text(&output.stdout), text(&output.stderr));
+    assert!(text(&output.stdout).starts_with("No failure found in 500 draws"), "{}", text(&output.stdout));
+    // every document that it links to is there
+    for link in readme.split("](").skip(1).filter_map(|rest| rest.split(')').next()) {
+        assert!(Path::new(&project(link)).exists(), "the README links to {link}");
+    }
 }

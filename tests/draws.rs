@@ -227,7 +227,8 @@ fn uniform_draws_pass_a_kolmogorov_smirnov_test() {
     let part = |range: DelayRange, span: Span| {
         ((span.fs() - range.min.fs()) as f64 + 0.5) / (range.max.fs() - range.min.fs() + 1) as f64
     };
-    let quantities: [(&str, Box<dyn Fn(&Instance) -> f64>); 4] = [
+    type Quantity<'a> = Box<dyn Fn(&Instance) -> f64 + 'a>;
+    let quantities: [(&str, Quantity); 4] = [
         ("gate delay", Box::new(|i| part(scenario.delays.gate[1][1], i.delays.gate[1][1]))),
         ("another gate's delay", Box::new(|i| part(scenario.delays.gate[2][0], i.delays.gate[2][0]))),
         ("place", Box::new(|i| part(DelayRange::between(fs(1_000), fs(50_000)), i.places[0]))),
@@ -257,9 +258,8 @@ fn corners_take_the_top_bit() {
     for sample in 0..50 {
         let instance = Instance::of(&scenario, &Which::Sample(sample));
         for (g, edges) in scenario.delays.gate.iter().enumerate() {
-            for edge in 0..2 {
-                let top = raw(42, 2 * sample, 2 * g as u64 + edge as u64) >> 63 == 1;
-                let range: DelayRange = edges[edge];
+            for (edge, range) in edges.iter().enumerate() {
+                let top = raw(42, 2 * sample, (2 * g + edge) as u64) >> 63 == 1;
                 assert_eq!(instance.delays.gate[g][edge], if top { range.max } else { range.min });
             }
         }

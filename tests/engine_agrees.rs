@@ -151,7 +151,7 @@ fn compare(scenario: &Scenario, rest: &Bits, instance: &Instance, of: &str) -> R
 /// Compares random cases of a kind; returns what was met.
 fn agree(count: u64, kind: Kind) -> Met {
     let mut met = Met::default();
-    for Case { name, scenario, rest, instance, .. } in cases(3 * count, kind) {
+    for Case { name, scenario, rest, instance, .. } in cases(count, kind) {
         met.count(&scenario.circuit, &compare(&scenario, &rest, &instance, &name));
     }
     met
@@ -159,49 +159,59 @@ fn agree(count: u64, kind: Kind) -> Met {
 
 #[test]
 fn inertial_from_rest() {
-    let met = agree(900, PLAIN);
+    let met = agree(2700, PLAIN);
     assert!(met.cases > 300 && met.settled > 500 && met.cut > 100 && met.exact > 30 && met.swallowed > 100, "{met:?}");
-    let met = agree(300, Kind { delays: Lengths::Wide, clocks: true, ..PLAIN });
+    let met = agree(900, Kind { delays: Lengths::Wide, clocks: true, ..PLAIN });
     assert!(met.cases > 100 && met.settled > 200 && met.cut > 100 && met.swallowed > 20, "{met:?}");
 }
 
 #[test]
 fn transport_and_mixtures_from_rest() {
-    let met = agree(500, Kind { filters: Filters::Transport, delays: Lengths::Short, ..PLAIN });
+    let met = agree(1500, Kind { filters: Filters::Transport, delays: Lengths::Short, ..PLAIN });
     assert!(met.cases > 100 && met.settled > 200 && met.swallowed > 20, "{met:?}");
-    let met = agree(700, Kind { filters: Filters::Mixed, wires: 0.3, ..PLAIN });
+    let met = agree(2100, Kind { filters: Filters::Mixed, wires: 0.3, ..PLAIN });
     assert!(met.cases > 200 && met.settled > 200 && met.cut > 100 && met.exact > 20 && met.swallowed > 50, "{met:?}");
 }
 
 #[test]
 fn random_starts() {
     let kind = Kind { begin: Start::Random, gates: (2, 12), ..PLAIN };
-    let met = agree(600, Kind { clocks: true, ..kind });
+    let met = agree(1800, Kind { clocks: true, ..kind });
     assert!(met.settled > 300 && met.cut > 300 && met.exact > 50 && met.transitions > 50 && met.time > 20, "{met:?}");
     assert!(met.wide.iter().all(|gates| *gates > 20), "{met:?}");
-    let met = agree(600, Kind { filters: Filters::Mixed, wires: 0.3, delays: Lengths::Short, clocks: true, ..kind });
+    let met = agree(1800, Kind { filters: Filters::Mixed, wires: 0.3, delays: Lengths::Short, clocks: true, ..kind });
     assert!(met.settled > 300 && met.cut > 300 && met.exact > 20 && met.transitions > 50, "{met:?}");
 }
 
 #[test]
 fn unknown_starts() {
     let kind = Kind { begin: Start::Unknown, gates: (2, 12), wires: 0.2, ..PLAIN };
-    let met = agree(700, kind);
+    let met = agree(2100, kind);
     assert!(met.unknown_left > 100 && met.settled > 300 && met.cut > 100, "{met:?}");
     assert!(met.wide.iter().all(|gates| *gates > 20), "{met:?}");
-    let met = agree(300, Kind { clocks: true, delays: Lengths::Short, ..kind });
+    let met = agree(900, Kind { clocks: true, delays: Lengths::Short, ..kind });
     assert!(met.unknown_left > 50 && met.settled > 100 && met.cut > 100, "{met:?}");
 }
 
 #[test]
 fn rings_that_recur_and_rings_that_nearly_do() {
     let kind = Kind { begin: Start::Random, gates: (2, 4), limits: &[150, 5000, 20_000], rings: true, ..PLAIN };
-    let met = agree(250, Kind { clocks: true, ..kind });
+    let met = agree(750, Kind { clocks: true, ..kind });
     assert!(met.exact > 100, "{met:?}");
-    let met = agree(250, Kind { filters: Filters::Mixed, wires: 0.2, delays: Lengths::Short, ..kind });
+    let met = agree(750, Kind { filters: Filters::Mixed, wires: 0.2, delays: Lengths::Short, ..kind });
     assert!(met.exact > 50, "{met:?}");
-    let met = agree(60, Kind { delays: Lengths::Wide, ..kind });
+    let met = agree(180, Kind { delays: Lengths::Wide, ..kind });
     assert!(met.inexact > 10, "{met:?}");
+}
+
+/// Enough gates for the other queue, and for a heap that is more than one level deep.
+#[test]
+fn larger_circuits() {
+    let kind = Kind { gates: (100, 160), begin: Start::Random, limits: &[2000], clocks: true, ..PLAIN };
+    let met = agree(15, kind);
+    assert!(met.cut > 100 && met.exact + met.transitions > 5, "{met:?}");
+    let met = agree(15, Kind { filters: Filters::Mixed, wires: 0.2, delays: Lengths::Wide, ..kind });
+    assert!(met.cut > 100 && met.exact + met.transitions > 5, "{met:?}");
 }
 
 /// Runs a world by all machines, from the first of its stable states.

@@ -295,6 +295,19 @@ fn a_run_ends_below_two_to_the_63() {
 }
 
 #[test]
+fn a_clock_runs_up_to_the_longest_run() {
+    // 40 periods of 2^60 fs do not fit into 2^64; eight rises lie below 2^63
+    let mut world = World::new();
+    world.input("clk", false).gate("q", Function::Not, &["clk"], 5);
+    let (net, period) = (world.net("clk"), exact(1 << 60));
+    let (first, high, jitter) = (exact(0), exact(1 << 59), fs(0));
+    world.clocks.push(("clk".into(), Clock { net, first, period, high, jitter, count: 40, mark: Mark(0) }));
+    let record = world.run().record;
+    assert_eq!(record.of(NetId(1)).len(), 16);
+    assert_eq!(record.windows.last().map(|w| (w.start, w.end)), Some(((1 << 63) - (1 << 59), End::Settled)));
+}
+
+#[test]
 fn a_limit_of_transitions_ends_the_run_after_the_batch_that_reaches_it() {
     for limit in 1..20 {
         let mut world = World::new();
@@ -373,6 +386,22 @@ fn skew_counts_from_the_earliest_and_settling_from_the_last() {
     let record = run(&scenario, &Bits::zeros(3), &instance);
     assert_eq!(record.windows[0].end, End::Cut);
     assert!(!record.windows[1].began_at_rest);
+}
+
+#[test]
+fn with_skew_an_input_that_is_set_to_what_it_has_does_not_change() {
+    // b is 0 and stays 0: settling counts from the change of a, and nothing is pending at 140
+    let mut world = World::new();
+    world.input("a", false).input("b", false).gate("q", Function::Or, &["a", "b"], 30);
+    world.at(100, &[("a", true), ("b", false)]).after(50, &[("b", true)]);
+    world.steps[0].skew = Some(DelayRange::between(fs(0), fs(50)));
+    let scenario = world.scenario();
+    let mut instance = Instance::of(&scenario, &Which::Typ);
+    instance.skews[0] = vec![fs(0), fs(50)];
+    let record = run(&scenario, &Bits::zeros(3), &instance);
+    assert_eq!(windows(&record), [(0, 100, 100, End::Settled), (1, 150, 150, End::Settled)]);
+    assert_eq!(record.windows[0].settling, Some(30));
+    assert!(record.windows[1].began_at_rest);
 }
 
 #[test]

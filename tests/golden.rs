@@ -2,6 +2,8 @@
 //!
 //! `STILLGATE_GOLDEN=rewrite cargo test golden` writes the files anew; look at the difference before it is kept.
 
+#![allow(clippy::unwrap_used)]
+
 mod cases;
 mod results;
 
@@ -11,8 +13,8 @@ use cases::*;
 use stillgate::circuit::Function;
 use stillgate::findings::{Asked, Shape};
 use stillgate::instance::Which;
-use stillgate::output::waves::{self, Picture};
 use stillgate::output::text::{self, Page, Style};
+use stillgate::output::waves::{self, Picture};
 use stillgate::output::{bundle, charts, json, tables};
 use stillgate::review::RunReport;
 use stillgate::scenario::Scenario;
@@ -166,6 +168,28 @@ fn clock_edges_and_cut_windows() {
 }
 
 #[test]
+fn a_second_run_is_dashed() {
+    let scenario = lock();
+    let asked = Asked::of(&scenario);
+    let (front, behind) = (run(&scenario, Which::Typ), run(&scenario, Which::Max));
+    let mut picture = Picture::of_run(&scenario, &asked, &front, "waves");
+    picture.layers.push(waves::Layer::Run(&behind));
+    let svg = &waves::sheets(&picture)[0].svg;
+    well_formed(svg);
+    golden("two-runs.svg", svg);
+}
+
+#[test]
+fn a_part_of_a_run() {
+    let scenario = chain(4, 20, "30");
+    let asked = Asked::of(&scenario);
+    let report = run(&scenario, Which::Typ);
+    let range = Some((at("100"), at("220")));
+    let picture = Picture { range, ..Picture::of_run(&scenario, &asked, &report, "waves") };
+    golden("part.svg", &waves::sheets(&picture)[0].svg);
+}
+
+#[test]
 fn many_nets_take_several_sheets() {
     let scenario = chain(45, 1, "10");
     let sheets = draw(&scenario, &run(&scenario, Which::Typ));
@@ -275,4 +299,75 @@ fn texts() {
     let mut typical = review.typical.take().unwrap();
     typical.facts.push(glitch(net(&scenario, "open_upper"), Shape::Static0, 3, "628", "631.1"));
     golden("run.txt", &text::run(&scenario, &review.asked, &typical, &page));
+}
+
+/// No line of a text is wider than the page, but for commands to be copied; and a review takes about one screen.
+#[test]
+fn texts_keep_to_the_page() {
+    let scenario = lock();
+    let review = results::review(&scenario);
+    for width in [60, 72, 80, 100, 250] {
+        let page = Page { width, scenario: Some("locks/interlock.toml"), ..Page::default() };
+        let run = review.typical.as_ref().unwrap();
+        let texts = [
+            text::review(&scenario, &review, &page),
+            text::states(&scenario, &review.states, &page),
+            text::check(&scenario, &page),
+            text::run(&scenario, &review.asked, run, &page),
+        ];
+        for line in texts.iter().flat_map(|text| text.lines()).filter(|line| !line.contains("stillgate run")) {
+            assert!(line.chars().count() <= width.min(100), "{width} columns: {line}");
+        }
+        if width >= 100 {
+            assert!(texts[0].lines().count() <= 56, "{}", texts[0]);
+        }
+    }
+}
+
+/// A sweep without findings never claims more than it saw.
+#[test]
+fn a_clean_sweep_claims_nothing() {
+    let scenario = lock();
+    let mut review = results::review(&scenario);
+    review.sweep.findings.clear();
+    for rule in &mut review.sweep.rules {
+        (rule.broken, rule.not_judged) = (0, Vec::new());
+    }
+    let verdict = stillgate::review::Verdict {
+        call: stillgate::review::Call::NoFailureFound,
+        sentence: "no failure found in 10,000 draws (Monte Carlo), for the 4 steps of this scenario".into(),
+        reasons: Vec::new(),
+    };
+    let text = text::sweep(&scenario, &review.asked, &review.sweep, &verdict, &Page::default());
+    assert!(text.starts_with("No failure found in 10,000 draws"), "{text}");
+    for claim in ["proved", "proven", "holds", "passed", "guarantee", "safe "] {
+        assert!(!text.to_lowercase().contains(claim), "\"{claim}\" in\n{text}");
+    }
+}
+
+/// Documents are JSON, begin with the format, and keep every digit of a time.
+#[test]
+fn documents_are_json() {
+    let scenario = lock();
+    let review = results::review(&scenario);
+    let asked = &review.asked;
+    let documents = [
+        json::check(&scenario),
+        json::states(&scenario, &review.states),
+        json::run(&scenario, asked, review.typical.as_ref().unwrap()),
+        json::sweep(&scenario, asked, &review.sweep),
+        json::review(&scenario, &review),
+    ];
+    for document in &documents {
+        let value: serde_json::Value = serde_json::from_str(document).unwrap();
+        assert_eq!(value["format"], 1);
+        assert!(document.starts_with("{\n  \"format\": 1,") && document.ends_with("}\n"), "{document}");
+    }
+    let value: serde_json::Value = serde_json::from_str(&documents[4]).unwrap();
+    for part in ["states", "typical", "sweep"] {
+        assert!(value[part]["format"].is_null(), "{part} is no document of its own");
+    }
+    assert!(value["sweep"]["findings"][1]["worst"].is_null(), "what is missing is null");
+    assert_eq!(value["typical"]["waves"]["open_upper"][1], serde_json::json!([114, 1]));
+    assert!(documents[3].contains("\"worst\": 2.100001"), "a time of an odd femtosecond");
 }

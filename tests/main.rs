@@ -1,5 +1,7 @@
 //! The promises to the user, one module each; `outside` checks against published sources.
 
+#![allow(clippy::unwrap_used)] // a helper that fails is a test that fails
+
 mod commands;
 mod draws;
 mod engine_agrees;
@@ -10,4 +12,5 @@ mod malformed;
 mod outside;
 mod support;
 mod sweeping;
+mod sweeps_agree;
 mod verdicts;

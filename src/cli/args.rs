@@ -5,7 +5,7 @@ use std::path::PathBuf;
 use clap::builder::PossibleValuesParser;
 use clap::{Args, Parser, Subcommand};
 
-/// Shows where a block of feedback logic comes to rest, for every delay its parts may have.
+/// Shows where a block of feedback logic comes to rest, with typical delays and with many draws of them.
 ///
 /// A scenario file holds the circuit, its delay ranges, the stimulus and the rules. Without one, the built-in
 /// demonstration is used: the interlock of two canal-lock gates.
@@ -40,7 +40,7 @@ pub struct Input {
     /// Print one JSON object instead of the text
     #[arg(long)]
     pub json: bool,
-    /// Print nothing but errors
+    /// Print nothing but errors (and the JSON object, with --json)
     #[arg(long, short)]
     pub quiet: bool,
 }
@@ -92,7 +92,10 @@ pub struct Running {
     /// Which case: typ, min, max, sample:N, or an instance file
     #[arg(long, value_name = "CASE", default_value = "typ")]
     pub delays: String,
-    /// Exit with 1 if a rule is broken in this run
+    /// Nets to draw, in this order, separated by commas; default all that fit
+    #[arg(long, value_name = "A,B,...", value_delimiter = ',')]
+    pub nets: Vec<String>,
+    /// Exit with 1 if a rule is broken or something could not be judged in this run
     #[arg(long)]
     pub strict: bool,
 }

@@ -152,13 +152,15 @@ pub fn called(input: &Input) -> Option<String> {
     input.scenario.as_ref().map(|path| path.display().to_string())
 }
 
-/// The folder for the files of a command.
-pub fn folder(input: &Input, folder: &Folder) -> PathBuf {
-    folder.out.clone().unwrap_or_else(|| {
+/// The folder for the files of a command, made: a bad place is told before the work is done.
+pub fn folder(input: &Input, folder: &Folder) -> Result<PathBuf, Failure> {
+    let folder = folder.out.clone().unwrap_or_else(|| {
         let name = input.scenario.as_deref().unwrap_or(Path::new(DEMONSTRATION_NAME));
         let stem = name.file_stem().map_or_else(|| "scenario".into(), |stem| stem.to_os_string());
         Path::new("stillgate-out").join(stem)
-    })
+    });
+    bundle::prepare(&folder)?;
+    Ok(folder)
 }
 
 /// Writes files into a folder and says so on standard error.

@@ -4,7 +4,7 @@ use std::process::ExitCode;
 
 use super::args::Sweeping;
 use super::common::{
-    Failure, INTERRUPTED, called, code, control, finish, folder, load, program, page, say, with_draws, write,
+    Failure, INTERRUPTED, called, code, control, finish, folder, load, page, program, say, with_draws, write,
 };
 use crate::output::{bundle, json, text};
 use crate::review;
@@ -12,6 +12,7 @@ use crate::review;
 pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     let input = &arguments.input;
     let scenario = with_draws(load(input)?, &arguments.draws);
+    let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(input.quiet, "review");
     let program = program(&scenario, &control)?;
     let review = review::review(&scenario, &program, arguments.threads.map_or(0, usize::from), &control)?;
@@ -25,7 +26,8 @@ pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
         say(&text::review(&scenario, &review, &page(called(input).as_deref())))?;
     }
     let bundle = bundle::of_review(&scenario, &review);
-    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    bundle::clear_pictures(&folder, &bundle);
+    write(&bundle, &folder, input.quiet || input.json)?;
     if control.cancelled() {
         return Ok(ExitCode::from(INTERRUPTED));
     }

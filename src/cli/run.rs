@@ -5,21 +5,24 @@ use std::process::ExitCode;
 
 use super::args::Running;
 use super::common::{Failure, called, control, finish, folder, load, page, program, say, with_draws, write};
+use crate::circuit::NetId;
 use crate::findings::Asked;
 use crate::instance::Which;
 use crate::output::instance::write_instance;
 use crate::output::{bundle, json, text};
 use crate::reader;
 use crate::review;
-use crate::scenario::Scenario;
+use crate::scenario::{Scenario, nearest};
 
 pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     let input = &arguments.input;
     let scenario = with_draws(load(input)?, &arguments.draws);
     let which = which(&arguments.delays, &scenario)?;
+    let nets = nets(&arguments.nets, &scenario)?;
     if scenario.cannot_run {
         return Err(Failure::Bad(format!("this circuit cannot be run yet: {}", scenario.not_analysed.join("; "))));
     }
+    let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(true, "run");
     let program = program(&scenario, &control)?;
     let asked = Asked::of(&scenario);
@@ -32,12 +35,28 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     } else if !input.quiet {
         say(&text::run(&scenario, &asked, &report, &page(called(input).as_deref())))?;
     }
-    let mut bundle = bundle::of_run(&scenario, &asked, &report, None);
-    bundle.add("run.json", document);
-    bundle.add("case.toml", write_instance(&report.instance, &scenario));
-    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    let mut bundle = bundle::of_run(&scenario, &asked, &report, nets);
+    let case = bundle::safe(&report.which.words());
+    bundle.add(&format!("run-{case}.json"), document);
+    bundle.add(&format!("case-{case}.toml"), write_instance(&report.instance, &scenario));
+    write(&bundle, &folder, input.quiet || input.json)?;
     let broken = report.facts.iter().any(|fact| fact.breaks_rule);
-    Ok(ExitCode::from(u8::from(arguments.strict && broken)))
+    let undecided = !report.not_judged.is_empty() || report.judged == 0;
+    Ok(ExitCode::from(u8::from(arguments.strict && (broken || undecided))))
+}
+
+/// The nets that `--nets` names; `None` for all.
+fn nets(names: &[String], scenario: &Scenario) -> Result<Option<Vec<NetId>>, Failure> {
+    let circuit = &scenario.circuit;
+    let net = |name: &String| {
+        circuit.net(name.trim()).ok_or_else(|| {
+            let like = nearest(name, circuit.nets().map(|net| circuit.name(net)));
+            let remedy = like.map_or_else(String::new, |like| format!("; did you mean `{like}`?"));
+            Failure::Bad(format!("`--nets`: there is no net `{name}`{remedy}"))
+        })
+    };
+    let nets = names.iter().map(net).collect::<Result<Vec<NetId>, Failure>>()?;
+    Ok((!nets.is_empty()).then_some(nets))
 }
 
 /// The case that `--delays` names.

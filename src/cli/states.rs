@@ -11,6 +11,7 @@ use crate::review;
 pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
     let input = &arguments.input;
     let scenario = load(input)?.scenario;
+    let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(true, "states");
     let report = review::states(&scenario.circuit, &control);
     finish(bar);
@@ -26,6 +27,6 @@ pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
     let mut bundle = Bundle::default();
     bundle.add("states.csv", tables::states(&scenario, &report));
     bundle.add("states.json", document);
-    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    write(&bundle, &folder, input.quiet || input.json)?;
     Ok(ExitCode::SUCCESS)
 }

@@ -4,7 +4,7 @@ use std::process::ExitCode;
 
 use super::args::Sweeping;
 use super::common::{
-    Failure, INTERRUPTED, called, code, control, finish, folder, load, program, page, say, with_draws, write,
+    Failure, INTERRUPTED, called, code, control, finish, folder, load, page, program, say, with_draws, write,
 };
 use crate::findings::Asked;
 use crate::output::{bundle, json, text};
@@ -13,6 +13,7 @@ use crate::review;
 pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     let input = &arguments.input;
     let scenario = with_draws(load(input)?, &arguments.draws);
+    let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(input.quiet, "sweep");
     let program = program(&scenario, &control)?;
     let asked = Asked::of(&scenario);
@@ -31,7 +32,7 @@ pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     }
     let mut bundle = bundle::of_sweep(&scenario, &asked, &report);
     bundle.add("sweep.json", document);
-    write(&bundle, &folder(input, &arguments.folder), input.quiet || input.json)?;
+    write(&bundle, &folder, input.quiet || input.json)?;
     if control.cancelled() {
         return Ok(ExitCode::from(INTERRUPTED));
     }

@@ -80,13 +80,15 @@ impl Agenda {
         }
     }
 
-    /// Takes out what is due at `at`. `quiet_since` as for [`Agenda::next`].
+    /// Takes out what is due at `at`. `quiet_since` as for [`Agenda::next`], `present` gives the value of an input just
+    /// before.
     pub(super) fn take(
         &mut self,
         at: Time,
         stimulus: &Stimulus,
         instance: &Instance,
         quiet_since: Option<Time>,
+        present: impl Fn(NetId) -> bool,
         due: &mut Due,
     ) {
         due.moments.clear();
@@ -110,18 +112,26 @@ impl Agenda {
             for (i, &(net, value)) in step.set.iter().enumerate() {
                 let delay = skews.get(i).map_or(Span::ZERO, |skew| *skew - earliest);
                 due.becomes.push((net, value));
-                if delay == Span::ZERO {
+                let before = due.set.iter().rfind(|set| set.0 == net).map_or_else(|| present(net), |set| set.1);
+                if before == value {
+                    // nothing changes: nothing is to come, and settling does not wait for it
+                } else if delay == Span::ZERO {
                     due.set.push((net, value));
                 } else {
                     due.settle_from = due.settle_from.max(at + delay);
                     self.later.push((at + delay, net, value));
                 }
             }
-            self.later.sort_by(|a, b| b.cmp(a));
+            if self.later.len() > 1 {
+                self.later.sort_by(|a, b| b.cmp(a));
+            }
             self.step += 1;
         }
-        let first_edge = stimulus.moments.len() as u32 - stimulus.clocks.iter().map(|c| 2 * c.count).sum::<u32>();
-        let mut base = first_edge;
+        if self.clocks.is_empty() {
+            return;
+        }
+        let edges: u32 = stimulus.clocks.iter().map(|clock| 2 * clock.count).sum();
+        let mut base = stimulus.moments.len() as u32 - edges;
         for (c, clock) in stimulus.clocks.iter().enumerate() {
             let (edge, time) = self.clocks[c];
             if edge != OVER && time <= at {

@@ -222,6 +222,7 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             observer.batch(Time::ZERO);
         }
 
+        let mut timed = self.agenda.next(&plan.stimulus, instance, None);
         let mut batches = 0u64;
         let end = loop {
             batches += 1;
@@ -230,7 +231,12 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             }
             let top = self.queue.top();
             let quiet_since = top.is_none().then_some(Time::from_fs(self.now));
-            let outside = self.agenda.next(&plan.stimulus, instance, quiet_since).map(|at| at.fs().max(self.now));
+            // what is timed stays as it is from one outside batch to the next; only a step at rest depends on the circuit
+            let outside = match (timed, quiet_since) {
+                (None, Some(_)) => self.agenda.next(&plan.stimulus, instance, quiet_since),
+                (timed, _) => timed,
+            };
+            let outside = outside.map(|at| at.fs().max(self.now));
             let at = match (top, outside) {
                 (None, None) => break End::Settled,
                 (Some((at, _)), None) => at,
@@ -255,17 +261,14 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             }
             if outside == Some(at) {
                 self.outside(plan, instance, at, quiet_since, &mut open, observer);
+                timed = self.agenda.next(&plan.stimulus, instance, None);
             } else {
                 self.inside(plan, at, observer);
             }
             if self.recurrence.is_touched() {
                 self.look_for_recurrence(plan);
             }
-            if self.recurrence.any()
-                && !self.queue_is_empty()
-                && self.all_recurred()
-                && self.agenda.next(&plan.stimulus, instance, None).is_none()
-            {
+            if self.recurrence.any() && !self.queue_is_empty() && timed.is_none() && self.all_recurred() {
                 break self.oscillating();
             }
             if self.transitions >= plan.limits.transitions && (!self.queue_is_empty() || self.agenda.is_moving()) {
@@ -475,7 +478,9 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         let at_rest = self.queue_is_empty() && !moving;
         self.find_owners(plan, at_rest);
         let mut due = std::mem::take(&mut self.due);
-        self.agenda.take(time, &plan.stimulus, instance, quiet_since, &mut due);
+        let inputs = &self.inputs;
+        let present = |net: NetId| inputs[net.index()].value() == Value::One;
+        self.agenda.take(time, &plan.stimulus, instance, quiet_since, present, &mut due);
         if let Some(&moment) = due.moments.first() {
             if let Some(window) = open.take() {
                 let end = match at_rest {
@@ -510,9 +515,11 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         self.dirty.clear();
         self.collect(at);
         self.changed.clear();
-        due.set.reverse();
-        due.set.sort_by_key(|(net, _)| *net);
-        due.set.dedup_by_key(|(net, _)| *net);
+        if due.set.len() > 1 {
+            due.set.reverse();
+            due.set.sort_by_key(|(net, _)| *net);
+            due.set.dedup_by_key(|(net, _)| *net);
+        }
         for &(net, value) in &due.set {
             let (old, new) = (self.inputs[net.index()], L::of(Value::from(value)));
             if old == new {

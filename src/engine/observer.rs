@@ -129,6 +129,9 @@ pub enum Hit {
 }
 
 impl Hit {
+    /// All limits.
+    pub const ALL: [Hit; 3] = [Hit::Transitions, Hit::Time, Hit::Longest];
+
     /// The limit in words.
     pub const fn words(self) -> &'static str {
         match self {

@@ -1,5 +1,7 @@
 //! Everything that a scenario asks, as numbered questions: one for each rule pattern or net, and step.
 
+use rustc_hash::FxHashMap;
+
 use crate::circuit::{Circuit, NetId, NetSet};
 use crate::scenario::{
     Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Scenario, Stimulus, Swallowed,
@@ -108,7 +110,9 @@ pub struct Question {
     pub moment: Option<u32>,
     /// Did the user write the rule, or is it a default?
     pub written: bool,
-    /// The bound, where it has one: for `glitch_free` and `never` 0 means none is tolerated.
+    /// Is it the absence of an oscillation that breaks it?
+    pub wants_oscillation: bool,
+    /// The bound, where it has just one: for `glitch_free` and `never` 0 means none is tolerated.
     pub bound: Option<Span>,
 }
 
@@ -117,12 +121,22 @@ pub struct Question {
 pub struct Asked {
     /// The questions, by number.
     pub questions: Vec<Question>,
+    /// The number of each question by what is asked.
+    numbers: FxHashMap<Key, u32>,
 }
+
+/// What tells questions apart: rule, which of several, net, moment.
+type Key = (RuleKey, u32, Option<NetId>, Option<u32>);
 
 /// The moments that can touch a cone.
 pub(super) fn touching<'a>(stimulus: &'a Stimulus, cone: &'a NetSet) -> impl Iterator<Item = u32> + 'a {
     let moments = stimulus.moments.iter().enumerate();
     moments.filter(|(_, m)| stimulus.inputs_of(m).iter().any(|net| cone.contains(*net))).map(|(i, _)| i as u32)
+}
+
+/// The one bound of two; `None` where both are given, since a margin could be that of either.
+fn only(a: Option<Span>, b: Option<Span>) -> Option<Span> {
+    a.xor(b)
 }
 
 impl Asked {
@@ -139,6 +153,7 @@ impl Asked {
             pattern: None,
             moment: None,
             written: true,
+            wants_oscillation: false,
             bound: None,
         };
         for (i, never) in rules.never.iter().enumerate() {
@@ -187,7 +202,7 @@ impl Asked {
             }
         }
         if rules.oscillation == Oscillation::Required {
-            questions.push(plain(RuleKey::Oscillation));
+            questions.push(Question { wants_oscillation: true, ..plain(RuleKey::Oscillation) });
         }
         for (m, moment) in stimulus.moments.iter().enumerate() {
             let own = stimulus.step_of(moment).and_then(|step| step.oscillation);
@@ -197,7 +212,9 @@ impl Asked {
             };
             if asked {
                 let written = own.is_some() || rules.oscillation_written;
-                questions.push(Question { moment: Some(m as u32), written, ..plain(RuleKey::Oscillation) });
+                let wants_oscillation = own == Some(Oscillation::Required);
+                let moment = Some(m as u32);
+                questions.push(Question { moment, written, wants_oscillation, ..plain(RuleKey::Oscillation) });
             }
         }
         for (i, rule) in rules.glitch_free.iter().enumerate() {
@@ -222,12 +239,12 @@ impl Asked {
                 index: i as u32,
                 name: rule.name.clone(),
                 pattern: Some(Pattern::Edges(rule.from, rule.to)),
-                bound: rule.min.or(rule.max),
+                bound: only(rule.min, rule.max),
                 ..plain(RuleKey::Timing)
             });
         }
         for (i, rule) in rules.min_pulse.iter().enumerate() {
-            let (index, net, bound) = (i as u32, Some(rule.net), rule.high.or(rule.low));
+            let (index, net, bound) = (i as u32, Some(rule.net), only(rule.high, rule.low));
             questions.push(Question { index, net, bound, ..plain(RuleKey::MinPulse) });
         }
         for net in &scenario.watched {
@@ -258,12 +275,13 @@ impl Asked {
                 }
             }
         }
-        Asked { questions }
+        let key = |q: &Question| (q.rule, q.index, q.net, q.moment);
+        let numbers = questions.iter().enumerate().map(|(i, q)| (key(q), i as u32)).collect();
+        Asked { questions, numbers }
     }
 
     /// The number of the question with these marks.
     pub fn find(&self, rule: RuleKey, index: u32, net: Option<NetId>, moment: Option<u32>) -> Option<u32> {
-        let mut all = self.questions.iter();
-        all.position(|q| (q.rule, q.index, q.net, q.moment) == (rule, index, net, moment)).map(|i| i as u32)
+        self.numbers.get(&(rule, index, net, moment)).copied()
     }
 }

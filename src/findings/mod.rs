@@ -9,5 +9,5 @@ mod pulses;
 mod words;
 
 pub use asked::{Asked, Pattern, Question, RuleKey};
-pub use judge::{Judge, Match, Seen, Sink, matches, matches_any};
+pub use judge::{Answers, Judge, Match, Seen, Sink, matches, matches_any};
 pub use words::{Fact, Kind, Measure, Reason, Shape, Subject};

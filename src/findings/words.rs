@@ -45,6 +45,27 @@ pub enum Kind {
 }
 
 impl Kind {
+    /// All kinds, most serious first.
+    pub const ALL: [Kind; 17] = [
+        Kind::Never,
+        Kind::NeverAtRest,
+        Kind::Expect,
+        Kind::NotInReference,
+        Kind::CriticalRace,
+        Kind::Oscillation,
+        Kind::Glitch,
+        Kind::Edges,
+        Kind::Timing,
+        Kind::MinPulse,
+        Kind::SettleWithin,
+        Kind::Swallowed,
+        Kind::BeforeRest,
+        Kind::NeverCame,
+        Kind::Unsettled,
+        Kind::Unresolved,
+        Kind::NonCriticalRace,
+    ];
+
     /// The word used in every file and text.
     pub const fn word(self) -> &'static str {
         match self {
@@ -121,6 +142,9 @@ impl Measure {
         Measure { rank: span.fs(), value: span.fs() }
     }
 
+    /// Worse than any time: for ever.
+    pub const ENDLESS: Measure = Measure { rank: u64::MAX, value: u64::MAX };
+
     /// A share p/d of a delay, of which more is worse.
     pub fn share(part: Span, whole: Span) -> Measure {
         let value = ((u128::from(part.fs()) << 53) / u128::from(whole.fs().max(1))) as u64;
@@ -164,11 +188,13 @@ pub enum Reason {
     Unresolved,
     /// The program does not analyse it yet.
     NotAnalysedYet,
+    /// There were too many different states to keep and compare.
+    TooManyStates,
 }
 
 impl Reason {
     /// All reasons, in the order in which they are counted.
-    pub const ALL: [Reason; 7] = [
+    pub const ALL: [Reason; 8] = [
         Reason::NotReached,
         Reason::BeganBeforeRest,
         Reason::Oscillating,
@@ -176,6 +202,7 @@ impl Reason {
         Reason::Cut,
         Reason::Unresolved,
         Reason::NotAnalysedYet,
+        Reason::TooManyStates,
     ];
 
     /// The words used in every file and text.
@@ -188,6 +215,7 @@ impl Reason {
             Reason::Cut => "cut",
             Reason::Unresolved => "unresolved",
             Reason::NotAnalysedYet => "not analysed yet",
+            Reason::TooManyStates => "too many different states",
         }
     }
 }

@@ -6,7 +6,7 @@ use std::io;
 use std::path::{Path, PathBuf};
 
 use crate::circuit::NetId;
-use crate::findings::{Asked, Subject};
+use crate::findings::{Asked, Kind, Subject};
 use crate::output::waves::{self, Nets, Picture};
 use crate::output::{charts, json, tables, words};
 use crate::review::{Review, RunReport};
@@ -15,8 +15,10 @@ use crate::time::Time;
 
 /// Most findings that get a picture of their failing case.
 pub const MOST_PICTURES: usize = 12;
-/// Runs of more windows than this are shown from the window before the finding to its end.
+/// Of runs with more windows than this only what is around the finding is shown.
 const WHOLE_RUN: usize = 8;
+/// Most cells of a waveform table.
+const MOST_CELLS: u64 = 20_000_000;
 /// Longest part of a file name.
 const PART: usize = 40;
 
@@ -76,7 +78,12 @@ impl Bundle {
             let number = if i == 0 { String::new() } else { format!("-{}", i + 1) };
             self.add(&format!("{stem}{number}.svg"), sheet.svg);
         }
-        self.add(&format!("{stem}.csv"), waves::csv(picture.scenario, &run.trace));
+        let cells = picture.scenario.circuit.net_count() as u64 * run.trace.changes.len() as u64;
+        if cells > MOST_CELLS {
+            self.notes.push(format!("{stem}.csv is left out: it would have {} cells.", words::count(cells)));
+        } else {
+            self.add(&format!("{stem}.csv"), waves::csv(picture.scenario, &run.trace));
+        }
     }
 }
 
@@ -128,7 +135,9 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     let all = review.sweep.findings.len();
     if shown.len() < all {
         let (some, all) = (words::count(shown.len() as u64), words::many(all as u64, "finding"));
-        bundle.notes.push(format!("{some} of {all} have a picture; run --delays sample:N draws any other (see findings.csv)."));
+        bundle
+            .notes
+            .push(format!("{some} of {all} have a picture; run --delays sample:N draws any other (see findings.csv)."));
     }
     let sweep = of_sweep(scenario, &review.asked, &review.sweep);
     bundle.files.extend(sweep.files);
@@ -142,9 +151,14 @@ fn around(subject: &Subject, run: &RunReport) -> Option<(Time, Time)> {
     if windows.len() <= WHOLE_RUN {
         return None;
     }
-    let moment = subject.moment?;
-    let at = windows.iter().position(|window| window.moment == moment)?;
-    Some((windows[at.saturating_sub(1)].start, windows[at].stop))
+    let window = windows.iter().find(|window| Some(window.moment) == subject.moment)?;
+    let place = run.facts.iter().find(|fact| fact.subject == *subject).and_then(|fact| fact.place);
+    let (from, to) = place.unwrap_or((window.start, window.stop));
+    let (from, to) = (from.min(window.start), to.max(window.stop));
+    // something of before and after, so that edges at both ends can be seen
+    let length = to.since(from).fs();
+    let before = Time::from_fs(from.fs().saturating_sub(length / 3));
+    Some((before, Time::from_fs(to.fs() + length / 12).min(run.trace.end.max(to))))
 }
 
 /// `waves-<kind>-<net or pattern>-<step>`, of letters, digits and dashes.
@@ -158,7 +172,7 @@ fn stem(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
 }
 
 /// Letters, digits and single dashes; everything else becomes a dash.
-fn safe(text: &str) -> String {
+pub fn safe(text: &str) -> String {
     let mut name = String::new();
     for letter in text.chars() {
         if letter.is_ascii_alphanumeric() {
@@ -184,15 +198,40 @@ fn unique(stem: String, taken: &mut BTreeSet<String>) -> String {
     name
 }
 
+/// Makes the folder, so that a bad place is known before the work is done.
+///
+/// Errors: it cannot be made, or is no folder.
+pub fn prepare(folder: &Path) -> Result<(), WriteError> {
+    fs::create_dir_all(folder).map_err(|source| WriteError::Folder { folder: folder.to_path_buf(), source })
+}
+
+/// Takes pictures of findings out of a folder that an earlier review left there and this one does not have: they would be
+/// taken for findings of this one.
+pub fn clear_pictures(folder: &Path, bundle: &Bundle) {
+    let ours: BTreeSet<&str> = bundle.files.iter().map(|file| file.name.as_str()).collect();
+    let of_a_finding = |name: &str| {
+        let kind = name.strip_prefix("waves-");
+        kind.is_some_and(|rest| Kind::ALL.iter().any(|kind| rest.starts_with(&format!("{}-", safe(kind.word())))))
+    };
+    for entry in fs::read_dir(folder).into_iter().flatten().flatten() {
+        let name = entry.file_name();
+        if let Some(name) = name.to_str().filter(|name| of_a_finding(name) && !ours.contains(name)) {
+            // what cannot be removed is only an old picture
+            let _ = fs::remove_file(folder.join(name));
+        }
+    }
+}
+
 /// Writes files into a folder, which is made if need be. Each file is complete under its name or not there: it is written
 /// beside its place and then moved. Files of the same names are replaced, others left alone.
 ///
 /// Errors: the folder or a file cannot be written; then no file has been moved into place, unless moving itself failed.
 pub fn write(folder: &Path, files: &[File]) -> Result<(), WriteError> {
-    fs::create_dir_all(folder).map_err(|source| WriteError::Folder { folder: folder.to_path_buf(), source })?;
+    prepare(folder)?;
     let beside = |file: &File| folder.join(format!(".{}.part", file.name));
     let done = files.iter().try_for_each(|file| {
-        fs::write(beside(file), &file.bytes).map_err(|source| WriteError::File { file: folder.join(&file.name), source })
+        fs::write(beside(file), &file.bytes)
+            .map_err(|source| WriteError::File { file: folder.join(&file.name), source })
     });
     let done = done.and_then(|()| {
         files.iter().try_for_each(|file| {

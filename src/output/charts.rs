@@ -17,6 +17,8 @@ pub const MOST_PANELS: usize = 12;
 const PANEL: (u32, u32) = (500, 230);
 /// Height of title and notes, pixels.
 const HEAD: u32 = 34;
+/// Most bars that get an outline.
+const MOST_OUTLINED: usize = 24;
 /// Font size that the backend turns into the small size of pictures: it divides by 1.24.
 const SMALL: f64 = ink::SMALL * 1.24;
 
@@ -55,7 +57,7 @@ fn draw(
     root.fill(&WHITE)?;
     let draws = words::count(report.samples);
     let title = words::clean(&format!("{}: settling time (Monte Carlo, {draws} draws)", scenario.title));
-    let title = cut_end(&title, 14.0, 2.0 * f64::from(PANEL.0) - 24.0).unwrap_or(title);
+    let title = cut_end(&title, 14.0, (2.0 * f64::from(PANEL.0) - 24.0) / 1.15).unwrap_or(title);
     let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
     root.draw(&Text::new(title, (12, 8), bold))?;
     for (i, (window, settling)) in shown.iter().enumerate() {
@@ -115,21 +117,20 @@ fn panel(area: &Area<'_>, scenario: &Scenario, window: &WindowReport, settling: 
         .x_desc(format!("settling time [{unit}]"))
         .y_desc("draws")
         .draw()?;
-    chart.draw_series(bars.iter().map(|(from, below, count)| {
-        let (from, below) = (value(*from), value(*below));
-        Rectangle::new([(from, 0.0), (below, *count as f64)], rgb(ink::BAND).filled())
-    }))?;
-    chart.draw_series(bars.iter().map(|(from, below, count)| {
-        let (from, below) = (value(*from), value(*below));
-        Rectangle::new([(from, 0.0), (below, *count as f64)], rgb(ink::INK).stroke_width(1))
-    }))?;
+    let bar = |(from, below, count): &(Span, Span, u64)| [(value(*from), 0.0), (value(*below), *count as f64)];
+    // outlines would fill narrow bars
+    let narrow = bars.len() > MOST_OUTLINED;
+    let fill = rgb(if narrow { ink::QUIET } else { ink::BAND });
+    chart.draw_series(bars.iter().map(|it| Rectangle::new(bar(it), fill.filled())))?;
+    if !narrow {
+        let line = rgb(ink::INK).stroke_width(1);
+        chart.draw_series(bars.iter().map(|it| Rectangle::new(bar(it), line)))?;
+    }
     let origin = area.get_base_pixel();
     let place = |at: Span| chart.backend_coord(&(value(at), 0.0));
     let bottom = place(Span::ZERO).1 - origin.1;
-    let boxes: Vec<(f64, f64)> = marks
-        .iter()
-        .map(|mark| (f64::from(place(mark.at).0 - origin.0), width(&mark.label, ink::SMALL)))
-        .collect();
+    let boxes: Vec<(f64, f64)> =
+        marks.iter().map(|mark| (f64::from(place(mark.at).0 - origin.0), width(&mark.label, ink::SMALL))).collect();
     for (mark, spot) in marks.iter().zip(spots(&boxes, f64::from(PANEL.0))) {
         let x = place(mark.at).0 - origin.0;
         let y = 20 + 14 * spot.row as i32;
@@ -168,7 +169,8 @@ fn spots(lines: &[(f64, f64)], room: f64) -> Vec<Spot> {
         for (spot, (x, wide)) in tried.iter().zip(lines) {
             let (from, to) = if spot.leftwards { (x - 5.0 - wide, x - 4.0) } else { (x + 4.0, x + 5.0 + wide) };
             let outside = from < 4.0 || to > room - 4.0;
-            let passing = tried.iter().zip(lines).filter(|(it, line)| it.row < spot.row && from < line.0 && line.0 < to);
+            let passing =
+                tried.iter().zip(lines).filter(|(it, line)| it.row < spot.row && from < line.0 && line.0 < to);
             cost += 4 * passing.count() + if outside { 20 } else { usize::from(spot.leftwards) };
         }
         if cost < best.0 {

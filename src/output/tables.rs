@@ -87,6 +87,7 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
             let named = words::subject(scenario, asked, &finding.subject);
             let (time, share) = match finding.worst {
                 Some(Worst::Time(span)) => (span.decimal(unit).to_string(), String::new()),
+                Some(Worst::Endless) => ("endless".to_string(), String::new()),
                 Some(Worst::Share(share)) => (String::new(), six(share).to_string()),
                 None => (String::new(), String::new()),
             };

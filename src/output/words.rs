@@ -1,8 +1,9 @@
 //! From numbers to the names and words that every output shares.
 
 use crate::circuit::NetId;
-use crate::findings::{Asked, Fact, Kind, Subject};
+use crate::findings::{Asked, Fact, Kind, Measure, Subject};
 use crate::instance::Which;
+pub(super) use crate::review::grouped as count;
 use crate::scenario::{MomentKind, Scenario};
 use crate::sweep::{Tie, Worst};
 use crate::time::Span;
@@ -67,6 +68,7 @@ pub(super) fn worst_of(fact: &Fact) -> Option<Worst> {
     let measure = fact.measure?;
     Some(match fact.subject.kind {
         Kind::Swallowed => Worst::Share(measure.as_share()),
+        _ if measure == Measure::ENDLESS => Worst::Endless,
         _ => Worst::Time(Span::from_fs(measure.value)),
     })
 }
@@ -118,19 +120,6 @@ pub(super) fn percent(share: f64) -> String {
         "100" if share < 1.0 => "above 99.9 %".to_string(),
         digits => format!("{digits} %"),
     }
-}
-
-/// A count with digits in groups of three: `10,000`.
-pub(super) fn count(number: u64) -> String {
-    let digits = number.to_string();
-    let mut text = String::new();
-    for (i, digit) in digits.chars().enumerate() {
-        if i > 0 && (digits.len() - i).is_multiple_of(3) {
-            text.push(',');
-        }
-        text.push(digit);
-    }
-    text
 }
 
 /// `1 step`, `3 steps`: a count with its noun.

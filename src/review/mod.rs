@@ -5,7 +5,7 @@ mod report;
 mod single;
 mod verdict;
 
-use std::collections::BTreeSet;
+use std::collections::BTreeMap;
 
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
@@ -13,8 +13,8 @@ pub use verdict::{grouped, verdict};
 
 use crate::circuit::NetId;
 use crate::control::Control;
-use crate::engine::{End, Program};
-use crate::findings::{Asked, Kind};
+use crate::engine::Program;
+use crate::findings::{Asked, Kind, RuleKey};
 use crate::instance::Which;
 use crate::scenario::Scenario;
 use crate::statics;
@@ -77,7 +77,7 @@ pub fn review(
     };
     let sweep = sweep(scenario, program, &asked, threads, control)?;
     let mut shown = Vec::new();
-    for index in to_show(&sweep) {
+    for index in to_show(&asked, &sweep) {
         let finding = &sweep.findings[index];
         let Some(sample) = finding.worst_sample.or(finding.sample) else { continue };
         let Some(run) = run_one(scenario, program, &asked, Which::Sample(sample), control) else { continue };
@@ -92,26 +92,28 @@ pub fn review(
     Ok(Review { asked, states, typical, sweep, shown, verdict })
 }
 
-/// The findings whose failing case is shown: rule breakers first, one a kind and net before more of the same.
-fn to_show(sweep: &SweepReport) -> Vec<usize> {
+/// Pictures of one kind, rule and net, at most.
+const ALIKE: usize = 2;
+
+/// The findings whose failing case is shown: rule breakers first, one a kind, rule and net before more of the same.
+fn to_show(asked: &Asked, sweep: &SweepReport) -> Vec<usize> {
     let mut first = Vec::new();
     let mut more = Vec::new();
-    let mut seen: BTreeSet<(Kind, Option<NetId>)> = BTreeSet::new();
+    let mut seen: BTreeMap<(Kind, Option<(RuleKey, u32)>, Option<NetId>), usize> = BTreeMap::new();
     for (index, finding) in sweep.findings.iter().enumerate() {
-        let new = seen.insert((finding.subject.kind, finding.subject.net));
-        if finding.breaks_rule {
-            if new { first.push(index) } else { more.push(index) }
-        } else if new && !matches!(finding.subject.kind, Kind::NonCriticalRace) {
-            more.push(index);
+        let subject = finding.subject;
+        let question = subject.question.and_then(|number| asked.questions.get(number as usize));
+        let alike = seen.entry((subject.kind, question.map(|q| (q.rule, q.index)), subject.net)).or_insert(0);
+        *alike += 1;
+        match (finding.breaks_rule, *alike) {
+            (true, 1) => first.push(index),
+            (true, 2..=ALIKE) => more.push(index),
+            (false, 1) if subject.kind != Kind::NonCriticalRace => more.push(index),
+            _ => {}
         }
     }
     first.append(&mut more);
     first.truncate(SHOWN);
     first.sort_unstable();
     first
-}
-
-/// Did the last window of a run oscillate or hit a limit, so that later steps never came?
-pub fn ended_early(run: &RunReport) -> Option<End> {
-    run.trace.windows.last().map(|window| window.end).filter(|end| !matches!(end, End::Settled | End::Cut))
 }

@@ -2,7 +2,7 @@
 
 use crate::circuit::NetId;
 use crate::engine::Trace;
-use crate::findings::{Asked, Fact};
+use crate::findings::{Asked, Fact, Reason};
 use crate::instance::{Instance, Which};
 use crate::logic::Bits;
 use crate::sweep::SweepReport;
@@ -18,6 +18,10 @@ pub struct RunReport {
     pub trace: Trace,
     /// What was found, worst first.
     pub facts: Vec<Fact>,
+    /// Questions judged in it.
+    pub judged: u64,
+    /// Questions that could not be judged in it, by number, and why.
+    pub not_judged: Vec<(u32, Reason)>,
 }
 
 /// The delay-free view.

@@ -4,13 +4,15 @@ use super::report::{RunReport, StatesReport};
 use crate::circuit::Circuit;
 use crate::control::Control;
 use crate::engine::{Program, Trace};
-use crate::findings::{Asked, Fact, Judge};
+use crate::findings::{Answers, Asked, Judge};
 use crate::instance::{Instance, Which};
 use crate::scenario::Scenario;
 use crate::statics::StateSet;
 
-/// Input vectors whose stable states are listed.
+/// Input vectors whose stable states are listed, at most.
 const VECTORS: usize = 1024;
+/// Values listed in all of them.
+const VALUES: usize = 1 << 20;
 /// Stable states listed for one input vector.
 const STATES: usize = 64;
 /// Rows of the state set that are listed.
@@ -27,14 +29,15 @@ pub fn run_one(
     control: &Control,
 ) -> Option<RunReport> {
     let instance = Instance::of(scenario, &which);
-    let mut observers = (Trace::default(), Judge::new(scenario, asked, Vec::<Fact>::new()));
+    let mut observers = (Trace::default(), Judge::new(scenario, asked, Answers::default()));
     if !program.machine().run(&instance, control, &mut observers) {
         return None;
     }
     let (trace, judge) = observers;
-    let mut facts = judge.sink;
+    let Answers { mut facts, judged, mut not_judged } = judge.sink;
+    not_judged.sort_unstable();
     facts.sort_by_key(|fact| (!fact.breaks_rule, fact.subject.kind, std::cmp::Reverse(fact.measure), fact.subject));
-    Some(RunReport { which, instance, trace, facts })
+    Some(RunReport { which, instance, trace, facts, judged, not_judged })
 }
 
 /// All stable states of a circuit. What a budget or limit cuts is said in the report.
@@ -55,10 +58,16 @@ pub fn states(circuit: &Circuit, control: &Control) -> StatesReport {
     report.count = Some(set.count().to_string());
     let rows = set.rows(ROWS);
     (report.rows, report.rows_truncated) = (rows.rows, rows.truncated);
+    let mut left = VALUES;
     let mut vectors = set.by_inputs(VECTORS, STATES);
     report.inputs_truncated = vectors.truncated();
     for vector in &mut vectors {
-        report.inputs_truncated |= vector.truncated;
+        let values = vector.states.len().max(1) * circuit.net_count();
+        report.inputs_truncated |= vector.truncated || values > left;
+        if values > left {
+            break;
+        }
+        left -= values;
         report.inputs.push((vector.inputs, vector.states));
     }
     if let Ok(counts) = set.vector_counts() {

@@ -7,7 +7,7 @@ use crate::circuit::NetId;
 use crate::delay::Marginal;
 use crate::findings::{Kind, Question, Reason, RuleKey};
 use crate::scenario::Scenario;
-use crate::sweep::{Finding, SweepReport};
+use crate::sweep::{Finding, RuleReport, SweepReport};
 
 /// The verdict of a sweep.
 pub fn verdict(scenario: &Scenario, sweep: &SweepReport) -> Verdict {
@@ -47,9 +47,10 @@ fn draws_word(draw: Marginal, n: u64) -> &'static str {
 
 /// `for the 5 steps and 2 clocks of this scenario`.
 fn stimulus(scenario: &Scenario) -> String {
-    let plural = |n: usize, word: &str| format!("{n} {word}{}", if n == 1 { "" } else { "s" });
+    let plural = |n: usize, word: &str| format!("{} {word}{}", grouped(n as u64), if n == 1 { "" } else { "s" });
     let (steps, clocks) = (scenario.stimulus.steps.len(), scenario.stimulus.clocks.len());
     let what = match (steps, clocks) {
+        (0, 0) => return "for its start alone".to_string(),
         (steps, 0) => plural(steps, "step"),
         (0, clocks) => plural(clocks, "clock"),
         (steps, clocks) => format!("{} and {}", plural(steps, "step"), plural(clocks, "clock")),
@@ -62,7 +63,7 @@ pub fn grouped(n: u64) -> String {
     let digits = n.to_string();
     let mut text = String::new();
     for (i, digit) in digits.chars().enumerate() {
-        if i > 0 && (digits.len() - i) % 3 == 0 {
+        if i > 0 && (digits.len() - i).is_multiple_of(3) {
             text.push(',');
         }
         text.push(digit);
@@ -76,24 +77,30 @@ fn broken(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
     let mut reasons = Vec::new();
     for finding in sweep.findings.iter().filter(|finding| finding.breaks_rule) {
         let subject = finding.subject;
-        let question = subject.question.and_then(|q| sweep.rules.get(q as usize)).map(|rule| &rule.question);
+        let rule = subject.question.and_then(|q| sweep.rules.get(q as usize));
+        let question = rule.map(|rule| &rule.question);
         let key = (subject.kind, question.map(|q| (q.index, q.name.clone())), subject.net);
         if seen.contains(&key) {
             continue;
         }
         seen.push(key);
-        reasons.push(sentence(scenario, finding, question));
+        reasons.push(sentence(scenario, finding, rule));
     }
     reasons
 }
 
-fn sentence(scenario: &Scenario, finding: &Finding, question: Option<&Question>) -> String {
+fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -> String {
     let subject = finding.subject;
+    let question = rule.map(|rule| &rule.question);
+    let whole = rule.filter(|rule| rule.question.moment.is_none());
     let circuit = &scenario.circuit;
     let net = subject.net.map(|net| format!(" at {}", circuit.name(net)));
     let what = match (question.and_then(|q| q.name.as_ref()), subject.shape) {
         (Some(name), _) => format!("\"{name}\" ({})", subject.kind.word()),
         (None, Some(shape)) => format!("{} {}", shape.word(), subject.kind.word()),
+        (None, None) if question.is_some_and(|question| question.wants_oscillation) => {
+            "no oscillation where it is required".to_string()
+        }
         (None, None) => {
             let pattern = question.and_then(|q| q.pattern.as_ref()).filter(|_| subject.kind != Kind::Edges);
             match pattern {
@@ -106,12 +113,32 @@ fn sentence(scenario: &Scenario, finding: &Finding, question: Option<&Question>)
         Some(moment) => format!(" after \"{}\"", scenario.stimulus.moments[moment as usize].label),
         None => String::new(),
     };
-    let share = format!(" in {} of {} draws", grouped(finding.count), grouped(finding.of));
-    format!("{what}{}{step}{share}", net.unwrap_or_default())
+    let net = net.unwrap_or_default();
+    // a rule for the whole run may break after several steps: its share is that of the rule
+    match whole {
+        Some(rule) if rule.broken > finding.count => {
+            let (broken, judged) = (grouped(rule.broken), grouped(rule.judged));
+            format!("{what}{net}{step} and elsewhere in {broken} of {judged} draws")
+        }
+        _ => format!("{what}{net}{step} in {} of {} draws", grouped(finding.count), grouped(finding.of)),
+    }
 }
 
-/// Questions that belong together: a rule, which of several, its net.
-type Group = (RuleKey, u32, Option<NetId>);
+/// Questions that belong together: a rule, which of several, its net, and the step if it is a clause of its own.
+type Group = (RuleKey, u32, Option<NetId>, Option<u32>);
+
+/// The moment of a question that is a step's own clause and not one rule for all steps.
+fn own_clause(scenario: &Scenario, question: &Question) -> Option<u32> {
+    let moment = question.moment?;
+    let step = scenario.stimulus.step_of(&scenario.stimulus.moments[moment as usize])?;
+    let own = match question.rule {
+        RuleKey::Expect | RuleKey::Edges => true,
+        RuleKey::SettleWithin => step.settle_within.is_some(),
+        RuleKey::Oscillation => step.oscillation.is_some(),
+        _ => false,
+    };
+    own.then_some(moment)
+}
 
 /// Why the verdict cannot be better than undecided, whatever else was found.
 fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
@@ -124,7 +151,9 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
     let mut unsettled = Vec::new();
     for window in sweep.windows.iter().filter(|window| window.unsettled > 0) {
         let label = &scenario.stimulus.moments[window.moment as usize].label;
-        unsettled.push(format!("\"{label}\" unsettled at a limit in {} draws", grouped(window.unsettled)));
+        let hits: Vec<&str> = window.hits.iter().map(|(hit, _)| hit.words()).collect();
+        let (hits, draws) = (hits.join(" or "), grouped(window.unsettled));
+        unsettled.push(format!("\"{label}\" did not settle before the limit {hits} in {draws} draws"));
     }
     reasons.extend(unsettled);
     for finding in sweep.findings.iter().filter(|finding| finding.subject.kind == Kind::Unresolved) {
@@ -134,7 +163,7 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
     let mut groups: BTreeMap<Group, (u64, BTreeMap<Reason, u64>, bool, String)> = BTreeMap::new();
     for rule in &sweep.rules {
         let question = &rule.question;
-        let group = (question.rule, question.index, question.net);
+        let group = (question.rule, question.index, question.net, own_clause(scenario, question));
         let named = question.moment.is_none_or(|moment| {
             let window = &sweep.windows[moment as usize];
             window.named > 0 || window.reached == 0
@@ -148,7 +177,8 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
         }
     }
     for (judged, not_judged, written, what) in groups.values() {
-        if !not_judged.is_empty() && !(scenario.rules.accept_not_judged && *judged > 0) {
+        let accepted = scenario.rules.accept_not_judged && *judged > 0;
+        if !not_judged.is_empty() && !accepted {
             let each: Vec<String> = not_judged
                 .iter()
                 .map(|(reason, count)| format!("{} in up to {} draws", reason.words(), grouped(*count)))
@@ -186,6 +216,9 @@ fn describe(scenario: &Scenario, question: &Question) -> String {
             text.push_str(&format!(" {}", pattern.words(&scenario.circuit)));
         }
         _ => {}
+    }
+    if let Some(moment) = own_clause(scenario, question) {
+        text.push_str(&format!(" of \"{}\"", scenario.stimulus.moments[moment as usize].label));
     }
     text
 }

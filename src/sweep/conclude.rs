@@ -3,12 +3,13 @@
 use std::collections::{BTreeMap, BTreeSet};
 
 use super::report::{Boards, Finding, Outcome, RuleReport, Settling, SweepReport, WindowReport, Worst};
-use super::seen::{Count, Key};
+use super::seen::Count;
 use super::spread::{self, Spread};
 use super::stats::clopper_pearson;
 use super::tally::{FactTally, Passage, Tally, WindowTally};
 use crate::delay::Marginal;
-use crate::findings::{Asked, Kind, Match, Reason, RuleKey, Subject, matches, matches_any};
+use crate::engine::Hit;
+use crate::findings::{Asked, Kind, Match, Measure, Reason, RuleKey, Subject, matches, matches_any};
 use crate::logic::State;
 use crate::scenario::{Alternative, Permission, Scenario};
 use crate::time::Span;
@@ -55,6 +56,13 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
     for (m, race) in races.iter().enumerate() {
         let moment = Some(m as u32);
         let question = asked.find(RuleKey::CriticalRace, 0, None, moment);
+        if let (true, Some(question)) = (tally.windows[m].passages.is_truncated(), question) {
+            // only what was kept can be compared
+            let rule = &mut rules[question as usize];
+            let left = rule.judged.saturating_sub(race.of);
+            rule.judged -= left;
+            rule.not_judged.extend((left > 0).then_some((Reason::TooManyStates, left)));
+        }
         let subject = |kind| Subject { kind, shape: None, question, net: None, moment };
         let fact = |strays: &Strays, breaks_rule| FactTally {
             breaks_rule,
@@ -124,15 +132,13 @@ impl Race {
     fn of(scenario: &Scenario, moment: u32, window: &WindowTally) -> Race {
         let mut groups: BTreeMap<&State, Vec<(&Passage, Count)>> = BTreeMap::new();
         for (passage, count) in window.passages.iter() {
-            if let Some(before) = &passage.before
-                && !passage.after.has_unknown()
-            {
+            if let Some(before) = passage.before.as_ref().filter(|_| !passage.after.has_unknown()) {
                 groups.entry(before).or_default().push((passage, count));
             }
         }
         let mut orders: BTreeMap<u64, Vec<Count>> = BTreeMap::new();
-        for ((passage, _), count) in window.orders.iter() {
-            orders.entry(*passage).or_default().push(count);
+        for (order, count) in window.orders.iter() {
+            orders.entry(order.passage).or_default().push(count);
         }
         let alternatives = expected(scenario, moment);
         let forbidden = scenario.rules.critical_race == Permission::Forbidden;
@@ -141,7 +147,7 @@ impl Race {
             let counts: Vec<Count> = outcomes.iter().map(|(_, count)| *count).collect();
             race.of += counts.iter().map(|c| c.count).sum::<u64>();
             if let [(passage, _)] = outcomes[..] {
-                if let Some(orders) = orders.get(&passage.hash()) {
+                if let Some(orders) = orders.get(&passage.mark()) {
                     Strays::join(&mut race.non_critical, Strays::of(orders));
                 }
                 continue;
@@ -197,12 +203,6 @@ fn without_one_alone<'a>(states: &[&'a State], alternatives: &[Alternative]) -> 
 }
 
 fn window(scenario: &Scenario, asked: &Asked, moment: u32, tally: &WindowTally, race: &Race) -> WindowReport {
-    let mut states: BTreeMap<&State, Count> = BTreeMap::new();
-    for (passage, count) in tally.passages.iter() {
-        let all = states.entry(&passage.after).or_insert(Count { count: 0, first: u64::MAX });
-        all.count += count.count;
-        all.first = all.first.min(count.first);
-    }
     let alternatives = expected(scenario, moment);
     let forbidden_rest = |state: &State| {
         scenario.rules.never_at_rest.iter().enumerate().any(|(i, rule)| {
@@ -215,8 +215,9 @@ fn window(scenario: &Scenario, asked: &Asked, moment: u32, tally: &WindowTally, 
             || forbidden_rest(state)
             || race.blamed.contains(state)
     };
-    let mut outcomes: Vec<Outcome> = states
-        .into_iter()
+    let mut outcomes: Vec<Outcome> = tally
+        .outcomes
+        .iter()
         .map(|(state, count)| Outcome {
             state: state.clone(),
             count: count.count,
@@ -230,9 +231,10 @@ fn window(scenario: &Scenario, asked: &Asked, moment: u32, tally: &WindowTally, 
         reached: tally.reached,
         named: tally.named,
         outcomes,
-        outcomes_truncated: tally.passages.is_truncated(),
+        outcomes_truncated: tally.outcomes.is_truncated(),
         settled: tally.settled,
         unsettled: tally.unsettled,
+        hits: Hit::ALL.into_iter().zip(tally.hits).filter(|(_, count)| *count > 0).collect(),
         oscillating: tally.oscillating,
         cut: tally.cut,
         began_before_rest: tally.began_before_rest,
@@ -325,6 +327,7 @@ impl Judging<'_> {
             }),
             worst: fact.worst.map(|(measure, _)| match subject.kind {
                 Kind::Swallowed => Worst::Share(measure.as_share()),
+                _ if measure == Measure::ENDLESS => Worst::Endless,
                 _ => Worst::Time(Span::from_fs(measure.value)),
             }),
             tie: None,

@@ -1,5 +1,6 @@
 //! What a sweep says, in ids and exact times; names and texts are made where results are written.
 
+use crate::engine::Hit;
 use crate::findings::{Question, Reason, Subject};
 use crate::logic::State;
 use crate::scenario::Plan;
@@ -37,6 +38,8 @@ pub struct WindowReport {
     pub settled: u64,
     /// Windows that a limit ended.
     pub unsettled: u64,
+    /// The limits that ended them, with their numbers; only those that did.
+    pub hits: Vec<(Hit, u64)>,
     /// Windows that oscillated.
     pub oscillating: u64,
     /// Windows that the next step ended.
@@ -143,6 +146,8 @@ pub struct Boards {
 pub enum Worst {
     /// A time.
     Time(Span),
+    /// Longer than any time: it lasts for ever, or what is waited for never comes.
+    Endless,
     /// A share of a delay, 0 to 1.
     Share(f64),
 }

@@ -6,12 +6,12 @@ use serde::{Deserialize, Serialize};
 
 use super::seen::{Count, Key, Seen, mix};
 use super::spread::Spread;
-use crate::engine::End;
+use crate::engine::{End, Hit};
 use crate::findings::{Asked, Fact, Measure, Reason, Seen as SeenWindow, Sink, Subject};
 use crate::logic::State;
 use crate::scenario::Scenario;
 
-/// From which state to which: the state before a step (`None` in windows that began before rest), and the settled one.
+/// From which state to which: the state before a step, and the settled one.
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
 pub struct Passage {
     /// Before.
@@ -24,10 +24,38 @@ fn hash_state(hash: u64, state: &State) -> u64 {
     state.ones.words().iter().chain(state.unknown.words()).fold(hash, |hash, word| mix(hash, *word))
 }
 
+/// What is kept of too many passages is decided by the state before alone: of each, all outcomes are kept or none.
 impl Key for Passage {
     fn hash(&self) -> u64 {
-        let start = self.before.as_ref().map_or(1, |before| hash_state(2, before));
-        hash_state(start, &self.after)
+        self.before.as_ref().map_or(1, |before| hash_state(2, before))
+    }
+}
+
+impl Passage {
+    /// A hash of both states.
+    pub(super) fn mark(&self) -> u64 {
+        hash_state(self.hash(), &self.after)
+    }
+}
+
+impl Key for State {
+    fn hash(&self) -> u64 {
+        hash_state(3, self)
+    }
+}
+
+/// An order of loop nets in one passage. Of each passage all orders are kept or none.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
+pub struct Order {
+    /// [`Passage::mark`].
+    pub passage: u64,
+    /// A hash of the order.
+    pub order: u64,
+}
+
+impl Key for Order {
+    fn hash(&self) -> u64 {
+        mix(0, self.passage)
     }
 }
 
@@ -42,16 +70,20 @@ pub struct WindowTally {
     pub settled: u64,
     /// A limit ended them.
     pub unsettled: u64,
+    /// By which limit, in the order of [`Hit::ALL`].
+    pub hits: [u64; Hit::ALL.len()],
     /// They recurred.
     pub oscillating: u64,
     /// The next step ended them.
     pub cut: u64,
     /// Windows that began with events pending.
     pub began_before_rest: u64,
-    /// Settled states, by the state before.
+    /// Settled states.
+    pub outcomes: Seen<State>,
+    /// Settled states of windows that began at rest, by the state before.
     pub passages: Seen<Passage>,
-    /// Orders of loop nets, by the hash of the passage.
-    pub orders: Seen<(u64, u64)>,
+    /// Orders of loop nets in them.
+    pub orders: Seen<Order>,
     /// Settling times of settled windows.
     pub settling: Spread,
     /// Lengths of cut windows.
@@ -150,9 +182,11 @@ impl WindowTally {
             named: 0,
             settled: 0,
             unsettled: 0,
+            hits: [0; Hit::ALL.len()],
             oscillating: 0,
             cut: 0,
             began_before_rest: 0,
+            outcomes: Seen::default(),
             passages: Seen::default(),
             orders: Seen::default(),
             settling: Spread::new(),
@@ -186,7 +220,7 @@ impl WindowTally {
                 other => *other = Some(Passage { before: seen.before.cloned(), after: seen.state.clone() }),
             }
             streak.has_before = seen.before.is_some();
-            streak.hash = streak.passage.as_ref().map_or(0, Key::hash);
+            streak.hash = streak.passage.as_ref().map_or(0, Passage::mark);
         }
         streak.order = seen.order;
         streak.count = Some(Count { count: 1, first: sample });
@@ -194,9 +228,11 @@ impl WindowTally {
 
     fn flush(&mut self) {
         if let (Some(passage), Some(count)) = (&self.streak.passage, self.streak.count.take()) {
-            self.passages.add(passage, count.count, count.first);
+            self.outcomes.add(&passage.after, count.count, count.first);
             if self.streak.has_before {
-                self.orders.add(&(self.streak.hash, self.streak.order), count.count, count.first);
+                self.passages.add(passage, count.count, count.first);
+                let order = Order { passage: self.streak.hash, order: self.streak.order };
+                self.orders.add(&order, count.count, count.first);
             }
         }
     }
@@ -206,9 +242,13 @@ impl WindowTally {
         self.named += other.named;
         self.settled += other.settled;
         self.unsettled += other.unsettled;
+        for (ours, theirs) in self.hits.iter_mut().zip(other.hits) {
+            *ours += theirs;
+        }
         self.oscillating += other.oscillating;
         self.cut += other.cut;
         self.began_before_rest += other.began_before_rest;
+        self.outcomes.merge(&other.outcomes);
         self.passages.merge(&other.passages);
         self.orders.merge(&other.orders);
         self.settling.merge(&other.settling);
@@ -370,7 +410,10 @@ impl Sink for Tally {
                 window.passed(seen, sample);
             }
             End::Oscillating { .. } => window.oscillating += 1,
-            End::Unsettled(_) => window.unsettled += 1,
+            End::Unsettled(hit) => {
+                window.unsettled += 1;
+                window.hits[hit as usize] += 1;
+            }
             End::Cut => {
                 window.cut += 1;
                 window.cut_after.add(seen.time);

@@ -166,7 +166,7 @@ pub fn run(scenario: &Scenario, which: Which) -> RunReport {
     let mut trace = Trace::default();
     let program = Program::with_rest(scenario, &rest(scenario));
     assert!(program.machine().run(&instance, &Control::default(), &mut trace));
-    RunReport { which, instance, trace, facts: Vec::new() }
+    RunReport { which, instance, trace, facts: Vec::new(), judged: 1, not_judged: Vec::new() }
 }
 
 pub fn net(scenario: &Scenario, name: &str) -> NetId {
@@ -335,10 +335,9 @@ pub fn without_recurrence(scenario: &Scenario, report: &mut RunReport, more: usi
     let period: Vec<_> = trace.changes[trace.changes.len() - 8..].to_vec();
     let length = ns("16").fs();
     for round in 1..=(more / 8) as u64 {
-        trace.changes.extend(period.iter().map(|change| Change {
-            at: change.at + Span::from_fs(length * round),
-            ..*change
-        }));
+        trace
+            .changes
+            .extend(period.iter().map(|change| Change { at: change.at + Span::from_fs(length * round), ..*change }));
     }
     let end = trace.changes.last().unwrap().at;
     let window = trace.windows.last_mut().unwrap();

@@ -6,9 +6,7 @@ use stillgate::instance::Which;
 use stillgate::logic::{Bits, State, Value};
 use stillgate::review::{Call, Review, StatesReport, Verdict};
 use stillgate::scenario::Scenario;
-use stillgate::sweep::{
-    Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport, Worst,
-};
+use stillgate::sweep::{Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport, Worst};
 use stillgate::time::Span;
 
 use super::cases::{self, ns};
@@ -58,6 +56,7 @@ pub fn window(moment: u32, outcomes: Vec<Outcome>, settling: Option<Settling>) -
         outcomes_truncated: false,
         settled,
         unsettled: 0,
+        hits: Vec::new(),
         oscillating: 0,
         cut: 0,
         began_before_rest: 0,
@@ -100,6 +99,7 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
     ];
     windows[3].oscillating = 7;
     windows[3].unsettled = 3;
+    windows[3].hits = vec![(stillgate::engine::Hit::Transitions, 3)];
     windows[2].cut = 12;
     let settling = windows[2].settling.as_mut().unwrap();
     (settling.p99_at_least, settling.max_at_least) = (true, true);

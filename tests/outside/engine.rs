@@ -224,7 +224,8 @@ fn gated_ring() {
 /// consensus term bc: none.
 #[test]
 fn consensus_example() {
-    let rows: [(u64, u64, u64, Option<(u64, u64)>, Option<(u64, u64)>); 5] = [
+    type Glitch = Option<(u64, u64)>;
+    let rows: [(u64, u64, u64, Glitch, Glitch); 5] = [
         (1000, 1000, 1000, Some((2000, 3000)), Some((2000, 3000))),
         (2000, 1000, 1000, Some((2000, 4000)), Some((2000, 4000))),
         (1000, 1000, 500, Some((1500, 2500)), Some((1500, 2500))),

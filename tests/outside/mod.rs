@@ -8,3 +8,4 @@ mod networks;
 mod random_networks;
 mod small_networks;
 mod stable_states;
+mod statistics;

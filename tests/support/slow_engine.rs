@@ -270,9 +270,13 @@ impl Slow<'_> {
             let least = skews.and_then(|skews| skews.iter().min()).map_or(0, |skew| skew.fs());
             for (entry, (net, bit)) in self.scenario.stimulus.steps[self.next_step].set.iter().enumerate() {
                 let when = at + skews.map_or(0, |skews| skews[entry].fs()) - least;
-                settle_from = settle_from.max(when);
-                self.coming.push((when, *net, *bit));
+                let before = self.coming.iter().rfind(|change| change.1 == *net).map(|change| Value::from(change.2));
                 last.insert(*net, *bit);
+                // an input that is set to what it has does not change
+                if before.unwrap_or(self.nets[net.index()]) != Value::from(*bit) {
+                    settle_from = settle_from.max(when);
+                    self.coming.push((when, *net, *bit));
+                }
             }
             self.placed = at;
             self.next_step += 1;

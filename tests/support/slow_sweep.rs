@@ -10,6 +10,7 @@ use stillgate::instance::{Instance, Which};
 use stillgate::logic::State;
 use stillgate::scenario::{Permission, Scenario};
 use stillgate::sweep::{Boards, Finding, SweepReport, WindowReport, Worst, clopper_pearson};
+use stillgate::time::Span;
 
 use super::heard::{Heard, HeardWindow};
 use super::slow_judge::{Answer, shows};
@@ -23,6 +24,15 @@ pub fn one_by_one(scenario: &Scenario, program: &Program, asked: &Asked, samples
         judge.sink
     };
     (0..samples).map(run).collect()
+}
+
+/// A measure as a finding tells it.
+pub fn told(kind: Kind, measure: Measure) -> Worst {
+    match kind {
+        Kind::Swallowed => Worst::Share(measure.as_share()),
+        _ if measure == Measure::ENDLESS => Worst::Endless,
+        _ => Worst::Time(Span::from_fs(measure.value)),
+    }
 }
 
 /// A finding: its subject, whether it breaks a rule, and the samples that show it, with the measure of each.
@@ -235,10 +245,7 @@ impl Whole<'_> {
         // the worst; of equally bad ones the first
         let worst = found.samples.iter().rev().max_by_key(|it| it.1).expect("one");
         assert_eq!(said.worst_sample, Some(worst.0), "{of}");
-        let value = worst.1.map(|measure| match said.subject.kind {
-            Kind::Swallowed => Worst::Share(measure.as_share()),
-            _ => Worst::Time(stillgate::time::Span::from_fs(measure.value)),
-        });
+        let value = worst.1.map(|measure| told(said.subject.kind, measure));
         assert_eq!(said.worst, value, "{of}");
         assert_eq!(said.tie, None, "{of}: not analysed");
     }

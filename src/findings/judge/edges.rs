@@ -138,7 +138,11 @@ impl Timing {
                 if slack < 0 || never_comes {
                     let slack = slack.min(-1);
                     self.score.add(slack);
-                    late(breach(Kind::Timing, self.question, self.to.net, moment, slack, from, at));
+                    let mut fact = breach(Kind::Timing, self.question, self.to.net, moment, slack, from, at);
+                    if never_comes {
+                        fact.measure = Some(Measure::ENDLESS);
+                    }
+                    late(fact);
                 } else if end != End::Settled && !self.to_is_input {
                     open = open.or(Some(reason_of(end)));
                 }

@@ -8,7 +8,7 @@ mod states;
 
 use edges::{MinPulse, Timing};
 use nets::{Count, NONE, Settle, Watch};
-pub use sink::{Seen, Sink};
+pub use sink::{Answers, Seen, Sink};
 use span::{Cone, NetWindow, Shut};
 use states::{Expect, Never, NotAtRest};
 pub use states::{Match, matches, matches_any};
@@ -83,6 +83,7 @@ pub struct Judge<S> {
     shut: End,
     unsettled: bool,
     oscillated: bool,
+    cut: bool,
     swallowed: Vec<u64>,
     swallowing: Vec<u32>,
     swallowed_broken: Vec<bool>,
@@ -101,15 +102,8 @@ impl<S: Sink> Judge<S> {
         let (circuit, rules, stimulus) = (&*scenario.circuit, &*scenario.rules, &*scenario.stimulus);
         let moments = stimulus.moments.len();
         let by_rule = |rule: RuleKey, index: u32, net: Option<NetId>| {
-            let mut all = vec![NONE; moments];
-            for (q, question) in asked.questions.iter().enumerate() {
-                if (question.rule, question.index, question.net) == (rule, index, net)
-                    && let Some(moment) = question.moment
-                {
-                    all[moment as usize] = q as u32;
-                }
-            }
-            all
+            let each = (0..moments as u32).map(|moment| asked.find(rule, index, net, Some(moment)).unwrap_or(NONE));
+            each.collect::<Vec<u32>>()
         };
         let single = |rule: RuleKey, index: u32, net: Option<NetId>| asked.find(rule, index, net, None).unwrap_or(NONE);
 
@@ -300,6 +294,7 @@ impl<S: Sink> Judge<S> {
             shut: End::Settled,
             unsettled: false,
             oscillated: false,
+            cut: false,
             swallowed: vec![0; circuit.gate_count()],
             swallowing: Vec::new(),
             late: Vec::new(),
@@ -493,7 +488,7 @@ impl<S: Sink> Observer for Judge<S> {
         self.values.copy_from(state);
         self.pending.clear();
         self.shut = End::Settled;
-        (self.unsettled, self.oscillated) = (false, false);
+        (self.unsettled, self.oscillated, self.cut) = (false, false, false);
         (self.order, self.order_open, self.has_before) = (0, false, false);
         self.late.clear();
         self.swallowed_broken.fill(false);
@@ -639,6 +634,7 @@ impl<S: Sink> Observer for Judge<S> {
         self.shut = closing.end;
         self.unsettled |= matches!(closing.end, End::Unsettled(_));
         self.oscillated |= matches!(closing.end, End::Oscillating { .. });
+        self.cut |= closing.end == End::Cut;
         self.pending.clear();
         self.pending.extend_from_slice(closing.pending);
         self.judge_window(closing);
@@ -675,6 +671,8 @@ impl<S: Sink> Observer for Judge<S> {
             match unseen {
                 _ if self.oscillated => self.sink.judged(question, false, None),
                 Some(reason) => self.sink.not_judged(question, reason),
+                // a window that was cut may have been on its way to recur
+                None if self.cut => self.sink.not_judged(question, Reason::Cut),
                 None => {
                     self.sink.judged(question, true, None);
                     let kind = Kind::Oscillation;

@@ -38,12 +38,26 @@ pub struct Seen<'a> {
     pub order: u64,
 }
 
-/// Keeps the facts of a single run, worst first.
-impl Sink for Vec<Fact> {
-    fn judged(&mut self, _question: u32, _broken: bool, _slack: Option<i64>) {}
-    fn not_judged(&mut self, _question: u32, _reason: Reason) {}
+/// Everything that was answered in a single run, in the order in which it was known.
+#[derive(Clone, Debug, Default)]
+pub struct Answers {
+    /// What was found.
+    pub facts: Vec<Fact>,
+    /// Questions judged.
+    pub judged: u64,
+    /// Questions that could not be judged, and why.
+    pub not_judged: Vec<(u32, Reason)>,
+}
+
+impl Sink for Answers {
+    fn judged(&mut self, _question: u32, _broken: bool, _slack: Option<i64>) {
+        self.judged += 1;
+    }
+    fn not_judged(&mut self, question: u32, reason: Reason) {
+        self.not_judged.push((question, reason));
+    }
     fn fact(&mut self, fact: Fact) {
-        self.push(fact);
+        self.facts.push(fact);
     }
     fn reached(&mut self, _moment: u32, _named: bool) {}
     fn window(&mut self, _window: &Seen<'_>) {}

@@ -190,7 +190,7 @@ impl Never {
             (None, true) => {
                 self.since = Some((at, moment));
                 if self.longer_than == Span::ZERO {
-                    self.found(Span::ZERO, at, moment, late);
+                    self.found(Measure::long(Span::ZERO), Span::ZERO, at, moment, late);
                 }
             }
             (Some((since, moment)), false) => {
@@ -204,13 +204,13 @@ impl Never {
     fn ended(&mut self, lasted: Span, since: Time, moment: Option<u32>, late: &mut impl FnMut(Fact)) {
         self.longest = self.longest.max(Some(lasted));
         if self.longer_than == Span::ZERO || lasted > self.longer_than {
-            self.found(lasted, since, moment, late);
+            self.found(Measure::long(lasted), lasted, since, moment, late);
         }
     }
 
-    fn found(&mut self, lasted: Span, since: Time, moment: Option<u32>, late: &mut impl FnMut(Fact)) {
+    fn found(&mut self, measure: Measure, lasted: Span, since: Time, moment: Option<u32>, late: &mut impl FnMut(Fact)) {
         self.broken = true;
-        let measure = Some(Measure::long(lasted));
+        let measure = Some(measure);
         let place = Some((since, since + lasted));
         late(Fact { measure, place, ..plain_fact(Kind::Never, self.question, moment) });
     }
@@ -226,10 +226,10 @@ impl Never {
         let mut open = unseen;
         if let Some((since, moment)) = self.since.take() {
             let lasted = at.since(since);
-            if end == End::Settled && unseen.is_none() && self.longer_than > Span::ZERO && lasted <= self.longer_than {
-                // still true at rest: for ever
+            if end == End::Settled && unseen.is_none() {
+                // still true at rest: for ever, however short the rest of the run was
                 self.longest = self.longest.max(Some(lasted));
-                self.found(lasted, since, moment, late);
+                self.found(Measure::ENDLESS, lasted, since, moment, late);
             } else {
                 self.ended(lasted, since, moment, late);
                 if lasted <= self.longer_than {

@@ -39,12 +39,14 @@ impl Serialize for Exact {
 pub(super) enum Measured {
     Time(Exact),
     Share(f64),
+    Endless(Option<()>),
 }
 
 impl Measured {
     pub fn of(worst: Worst, unit: Unit) -> Measured {
         match worst {
             Worst::Time(span) => Measured::Time(Exact::span(span, unit)),
+            Worst::Endless => Measured::Endless(None),
             Worst::Share(share) => Measured::Share(crate::output::words::six(share)),
         }
     }

@@ -19,6 +19,8 @@ pub(super) struct Run<'a> {
     waves: Object<&'a str, OneLine<Vec<(Exact, Level)>>>,
     windows: Vec<Window<'a>>,
     facts: Lines<Found<'a>>,
+    judged: u64,
+    not_judged: Lines<Unjudged<'a>>,
     stopped_before: Option<&'a str>,
 }
 
@@ -35,6 +37,15 @@ struct Window<'a> {
     moving: OneLine<Object<&'a str, u32>>,
     limit: Option<&'static str>,
     began_at_rest: bool,
+}
+
+#[derive(Serialize)]
+struct Unjudged<'a> {
+    rule: &'static str,
+    name: Option<&'a str>,
+    net: Option<&'a str>,
+    step: Option<&'a str>,
+    reason: &'static str,
 }
 
 #[derive(Serialize)]
@@ -96,6 +107,16 @@ impl<'a> Run<'a> {
                 place: fact.place.map(|(from, to)| (Exact::time(from, unit), Exact::time(to, unit))),
             }
         };
+        let unjudged = |(number, reason): &(u32, crate::findings::Reason)| {
+            let question = asked.questions.get(*number as usize)?;
+            Some(Unjudged {
+                rule: question.rule.word(),
+                name: question.name.as_deref(),
+                net: question.net.map(|net| circuit.name(net)),
+                step: words::step(scenario, question.moment),
+                reason: reason.words(),
+            })
+        };
         Run {
             format,
             delays: run.which.key(),
@@ -103,6 +124,8 @@ impl<'a> Run<'a> {
             waves: Object(waves.collect()),
             windows: trace.windows.iter().map(window).collect(),
             facts: Lines(run.facts.iter().map(fact).collect()),
+            judged: run.judged,
+            not_judged: Lines(run.not_judged.iter().filter_map(unjudged).collect()),
             stopped_before: words::step(scenario, trace.stopped_before),
         }
     }

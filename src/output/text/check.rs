@@ -76,9 +76,8 @@ fn steps(paper: &mut Paper, scenario: &Scenario) {
             }
             MomentKind::Step(step) => {
                 let step = &stimulus.steps[step as usize];
-                let sets = step.set.iter().map(|(net, value)| {
-                    format!("{}={}", words::net(scenario, *net), u8::from(*value))
-                });
+                let sets =
+                    step.set.iter().map(|(net, value)| format!("{}={}", words::net(scenario, *net), u8::from(*value)));
                 (place(scenario, &step.place), sets.collect::<Vec<_>>().join(" "))
             }
         };
@@ -104,7 +103,8 @@ fn place(scenario: &Scenario, place: &Place) -> String {
         Place::Rest(wait) if wait.fs() == 0 => "at rest".to_string(),
         Place::Rest(wait) => format!("{} {unit} after rest", wait.decimal(unit)),
         Place::When { pattern, wait, .. } => {
-            let nets = pattern.iter().map(|(net, value)| format!("{}={}", words::net(scenario, *net), u8::from(*value)));
+            let nets =
+                pattern.iter().map(|(net, value)| format!("{}={}", words::net(scenario, *net), u8::from(*value)));
             let nets = nets.collect::<Vec<_>>().join(" ");
             if wait.is_exact() && wait.min.fs() == 0 {
                 format!("when {nets}")

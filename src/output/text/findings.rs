@@ -2,10 +2,10 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use crate::findings::{Asked, Kind, Subject};
+use crate::findings::{Asked, Kind, RuleKey, Subject};
 use crate::output::words;
 use crate::scenario::Scenario;
-use crate::sweep::{Finding, SweepReport, Tie, Worst};
+use crate::sweep::{Finding, RuleReport, SweepReport, Tie, Worst};
 
 /// Most findings told in full.
 const FULL: usize = 5;
@@ -16,6 +16,9 @@ const LISTED: usize = 4;
 pub(super) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
     let named = words::subject(scenario, asked, subject);
     let mut text = named.kind.to_string();
+    if wants_oscillation(asked, subject) {
+        text = "no oscillation where it is required".to_string();
+    }
     if let Some(shape) = named.shape {
         text += &format!(" {shape}");
     }
@@ -34,14 +37,24 @@ pub(super) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> St
     text
 }
 
+/// Is it the absence of an oscillation that breaks the rule?
+fn wants_oscillation(asked: &Asked, subject: &Subject) -> bool {
+    let question = subject.question.and_then(|number| asked.questions.get(number as usize));
+    question.is_some_and(|question| question.wants_oscillation)
+}
+
 /// The worst value in words, by what it measures.
 pub(super) fn worst(kind: Kind, worst: Worst) -> String {
     match (kind, worst) {
-        (Kind::Glitch | Kind::MinPulse, Worst::Time(width)) => format!("narrowest {}", width.rounded()),
+        (Kind::Never, Worst::Endless) => "for ever".to_string(),
+        (_, Worst::Endless) => "the second edge never came".to_string(),
+        (Kind::Glitch, Worst::Time(width)) => format!("pulses up to {} wide", width.rounded()),
+        (Kind::MinPulse, Worst::Time(width)) => format!("narrowest {}", width.rounded()),
         (Kind::SettleWithin, Worst::Time(time)) => format!("latest {}", time.rounded()),
         (Kind::Never, Worst::Time(time)) => format!("longest {}", time.rounded()),
+        (Kind::Oscillation, Worst::Time(period)) => format!("longest period {}", period.rounded()),
         (_, Worst::Time(time)) => format!("worst {}", time.rounded()),
-        (_, Worst::Share(share)) => format!("up to {} of the delay", words::three(share)),
+        (_, Worst::Share(share)) => format!("at worst {} of the delay", words::percent(share)),
     }
 }
 
@@ -71,15 +84,70 @@ fn figures(finding: &Finding) -> String {
     text
 }
 
+/// Findings of one kind, rule and net after several steps: the worst, and how many more.
+struct Group<'a> {
+    worst: &'a Finding,
+    more_steps: usize,
+    /// How the whole rule fared, where it is judged once a run.
+    whole: Option<&'a RuleReport>,
+}
+
+/// Groups in the order of their worst findings.
+fn groups<'a>(asked: &Asked, report: &'a SweepReport, broken: bool) -> Vec<Group<'a>> {
+    let rule = |subject: &Subject| {
+        let question = subject.question.and_then(|number| asked.questions.get(number as usize));
+        // what a step expects is its own; other rules are one rule for all steps
+        let own = question.filter(|it| matches!(it.rule, RuleKey::Expect | RuleKey::Edges)).and(subject.moment);
+        (question.map(|it| (it.rule, it.index)), own)
+    };
+    let mut groups: Vec<Group<'a>> = Vec::new();
+    for finding in report.findings.iter().filter(|it| it.breaks_rule == broken) {
+        let whole = finding.subject.question.and_then(|number| report.rules.get(number as usize));
+        let whole = whole.filter(|rule| rule.question.moment.is_none() && rule.margin_sample.is_some());
+        let key = |it: &Finding| (it.subject.kind, it.subject.shape, it.subject.net, rule(&it.subject));
+        match groups.iter_mut().find(|group| key(group.worst) == key(finding)) {
+            Some(group) => {
+                group.more_steps += 1;
+                // of a rule for the whole run the step with the worst value speaks for all
+                if whole.is_some_and(|rule| rule.margin_sample == finding.worst_sample) {
+                    group.worst = finding;
+                }
+            }
+            None => groups.push(Group { worst: finding, more_steps: 0, whole }),
+        }
+    }
+    groups
+}
+
+impl Group<'_> {
+    fn about(&self, scenario: &Scenario, asked: &Asked) -> String {
+        let also = match self.more_steps {
+            0 => String::new(),
+            n => format!(" (and {})", words::many(n as u64, "more step")),
+        };
+        about(scenario, asked, &self.worst.subject) + &also
+    }
+
+    fn figures(&self) -> String {
+        match self.whole.filter(|_| self.more_steps > 0) {
+            Some(rule) => {
+                let (broken, judged) = (words::count(rule.broken), words::count(rule.judged));
+                format!("{broken} of {judged} draws over all steps; at this step {}", figures(self.worst))
+            }
+            None => figures(self.worst),
+        }
+    }
+}
+
 /// Findings that break a rule in full, then those that break none.
 pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, asked: &Asked, report: &SweepReport) {
-    let (broken, listed): (Vec<&Finding>, Vec<&Finding>) = report.findings.iter().partition(|it| it.breaks_rule);
+    let (broken, listed) = (groups(asked, report, true), groups(asked, report, false));
     if !broken.is_empty() {
         paper.heading("Findings that break a rule, worst first");
-        for (i, finding) in broken.iter().take(FULL).enumerate() {
-            let text = format!("{} {}", i + 1, about(scenario, asked, &finding.subject));
-            paper.hang(2, 4, Tone::Bad, &text);
-            paper.say(4, Tone::Plain, &figures(finding));
+        for (i, group) in broken.iter().take(FULL).enumerate() {
+            let finding = group.worst;
+            paper.hang(2, 4, Tone::Bad, &format!("{} {}", i + 1, group.about(scenario, asked)));
+            paper.say(4, Tone::Plain, &group.figures());
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
                 paper.whole(4, &page.replay(sample));
             }
@@ -88,9 +156,8 @@ pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, 
     }
     if !listed.is_empty() {
         paper.heading("Also seen, breaks no rule");
-        for finding in listed.iter().take(LISTED) {
-            let text = format!("{}: {}", about(scenario, asked, &finding.subject), figures(finding));
-            paper.item(Tone::Plain, &text);
+        for group in listed.iter().take(LISTED) {
+            paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures()));
         }
         super::more(paper, listed.len().saturating_sub(LISTED), "findings.csv");
     }

@@ -46,7 +46,9 @@ impl Page<'_> {
     /// The command that replays a sample.
     fn replay(&self, sample: u64) -> String {
         let scenario = match self.scenario {
-            Some(name) if name.chars().any(|letter| letter.is_whitespace() || matches!(letter, '\'' | '"' | '&' | '$')) => {
+            Some(name)
+                if name.chars().any(|letter| letter.is_whitespace() || matches!(letter, '\'' | '"' | '&' | '$')) =>
+            {
                 format!(" '{}'", name.replace('\'', "'\\''"))
             }
             Some(name) => format!(" {name}"),

@@ -1,5 +1,7 @@
 //! Lines of text of limited width: wrapping, aligned columns, and colour where it is wanted.
 
+use crate::time::Unit;
+
 /// How a terminal shows text.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub enum Style {
@@ -87,7 +89,7 @@ impl Paper {
         let mut line = " ".repeat(first);
         let mut is_empty = true;
         let mut used = first;
-        for word in text.split_whitespace() {
+        for word in words(text) {
             let mut rest: Vec<char> = word.chars().map(shown).collect();
             if !is_empty && used + 1 + rest.len() > self.width {
                 self.put(tone, &line);
@@ -155,6 +157,23 @@ impl Paper {
             _ => self.text += &format!("{line}\n"),
         }
     }
+}
+
+/// The words of a text; a number stays with its unit.
+fn words(text: &str) -> Vec<String> {
+    let mut words: Vec<String> = Vec::new();
+    for word in text.split_whitespace() {
+        let bare = word.trim_end_matches([',', '.', ';', ')', ':']);
+        let is_unit = bare == "%" || Unit::ALL.iter().any(|unit| unit.name() == bare);
+        match words.last_mut() {
+            Some(last) if is_unit && last.ends_with(|letter: char| letter.is_ascii_digit()) => {
+                last.push(' ');
+                last.push_str(word);
+            }
+            _ => words.push(word.to_string()),
+        }
+    }
+    words
 }
 
 /// Control characters could steer a terminal.

@@ -34,10 +34,13 @@ pub(super) fn verdict(paper: &mut Paper, verdict: &Verdict) {
         Call::Proved | Call::NoFailureFound => Tone::Strong,
     };
     paper.say(0, tone, &format!("{capital}{}", letters.as_str()));
-    for reason in verdict.reasons.iter().take(REASONS) {
-        paper.item(Tone::Plain, reason);
+    // a single reason is in the sentence already
+    if verdict.reasons.len() > 1 {
+        for reason in verdict.reasons.iter().take(REASONS) {
+            paper.item(Tone::Plain, reason);
+        }
+        super::more(paper, verdict.reasons.len().saturating_sub(REASONS), "the JSON, with --json");
     }
-    super::more(paper, verdict.reasons.len().saturating_sub(REASONS), "result.json");
 }
 
 /// Everything about a sweep below its first sentence.
@@ -48,7 +51,7 @@ pub(super) fn body(
     asked: &crate::findings::Asked,
     report: &SweepReport,
 ) {
-    paper.heading(&format!("{}: steps, outcomes, settling times ({})", scenario.title, draws(report)));
+    paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
     if report.samples < report.plan.samples {
         let (done, wanted) = (words::count(report.samples), words::count(report.plan.samples));
         paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run."));

@@ -11,7 +11,7 @@ use crate::time::{Span, rounded};
 const MOST: usize = 5;
 
 /// A question in words: `settle_within, open_upper, step together`.
-fn about(scenario: &Scenario, question: &Question, with_step: bool) -> String {
+pub(super) fn about(scenario: &Scenario, question: &Question, with_step: bool) -> String {
     let mut text = question.rule.word().to_string();
     if let Some(name) = &question.name {
         text += &format!(" \"{name}\"");
@@ -33,10 +33,15 @@ pub(super) fn count(paper: &mut Paper, report: &SweepReport) {
     let broken = report.rules.iter().filter(|rule| rule.broken > 0).count() as u64;
     let unjudged = report.rules.iter().filter(|rule| rule.broken == 0 && !rule.not_judged.is_empty()).count() as u64;
     let asked = report.rules.len() as u64;
-    let rest = asked - broken - unjudged;
+    let untested = report.rules.iter().filter(|rule| rule.judged == 0 && rule.not_judged.is_empty()).count() as u64;
+    let rest = asked - broken - unjudged - untested;
+    let never = match untested {
+        0 => String::new(),
+        n => format!("; never put to the test: {}", words::count(n)),
+    };
     let draws = words::many(report.samples, "draw");
     let text = format!(
-        "Asked: {} (a rule and a step, or a rule for the whole run). Broken: {}; not judged in some draws: {}; no failure found in {draws}: {}.",
+        "Asked: {} (a rule and a step, or a rule for the whole run). Broken: {}; not judged in some draws: {}{never}; no failure found in {draws}: {}.",
         words::many(asked, "question"),
         words::count(broken),
         words::count(unjudged),
@@ -93,7 +98,7 @@ pub(super) fn margins(paper: &mut Paper, scenario: &Scenario, report: &SweepRepo
         return;
     }
     paper.heading(&format!("Smallest margins without a failure, in {}", words::many(report.samples, "draw")));
-    let mut table = Table::new().number("margin", 0).number("of", 0).text("rule").text("step").number("sample", 1);
+    let mut table = Table::new().number("margin", 0).number("bound", 0).text("rule").text("step").number("sample", 1);
     for (rule, margin, bound) in least.iter().take(MOST) {
         table.row(
             Tone::Plain,

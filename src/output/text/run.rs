@@ -3,7 +3,7 @@
 use super::Page;
 use super::findings::{about, worst};
 use super::paper::{Paper, Table, Tone};
-use super::{notes, steps};
+use super::{notes, rules, steps};
 use crate::engine::{End, Window};
 use crate::findings::{Asked, Fact};
 use crate::output::words;
@@ -20,6 +20,11 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
     let mut paper = page.paper();
     let broken = report.facts.iter().filter(|fact| fact.breaks_rule).count() as u64;
     let (tone, text) = match broken {
+        0 if !report.not_judged.is_empty() => {
+            let questions = words::many(report.not_judged.len() as u64, "question");
+            (Tone::Unsure, format!("undecided, {questions} not judged in this run"))
+        }
+        0 if report.judged == 0 => (Tone::Unsure, "undecided, nothing was put to the test in this run".to_string()),
         0 => (Tone::Strong, "no failure found in this one run".to_string()),
         1 => (Tone::Bad, "1 finding breaks a rule in this run".to_string()),
         n => (Tone::Bad, format!("{} findings break a rule in this run", words::count(n))),
@@ -46,6 +51,15 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
         }
         super::more(&mut paper, report.facts.len().saturating_sub(FACTS), "the JSON, with --json");
     }
+    if !report.not_judged.is_empty() {
+        paper.heading("Not judged in this run");
+        let questions =
+            report.not_judged.iter().filter_map(|(q, reason)| Some((asked.questions.get(*q as usize)?, reason)));
+        for (question, reason) in questions.take(FACTS) {
+            paper.item(Tone::Unsure, &format!("{}: {}", rules::about(scenario, question, true), reason.words()));
+        }
+        super::more(&mut paper, report.not_judged.len().saturating_sub(FACTS), "the JSON, with --json");
+    }
     paper.gap();
     let events = words::many(report.trace.events, "event");
     let end = report.trace.end.from_start().rounded();
@@ -55,8 +69,7 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
 }
 
 fn table(paper: &mut Paper, scenario: &Scenario, windows: &[Window]) {
-    let mut table =
-        Table::new().text("step").number("from", 1).word("end").number("settling", 0).text("at rest");
+    let mut table = Table::new().text("step").number("from", 1).word("end").number("settling", 0).text("at rest");
     for window in windows.iter().take(WINDOWS) {
         let (tone, rest) = match window.end {
             End::Settled => (Tone::Plain, steps::state(scenario, &scenario.outputs, &window.state)),

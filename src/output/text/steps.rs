@@ -53,68 +53,87 @@ pub(super) fn steps(paper: &mut Paper, scenario: &Scenario, report: &SweepReport
         .number("median", 2)
         .number("99th perc.", 3)
         .number("longest", 1);
-    let mut left = 0;
-    let mut rows = 0;
-    for window in &report.windows {
-        let lines = lines(scenario, window);
-        if rows > 0 && rows + lines.len() > ROWS {
-            left += 1;
-            continue;
-        }
-        rows += lines.len();
-        for (i, (tone, draws, words)) in lines.into_iter().enumerate() {
+    let all: Vec<Vec<Line>> = report.windows.iter().map(|window| lines(scenario, window)).collect();
+    let shown = chosen(&report.windows, &all);
+    for ((window, lines), _) in report.windows.iter().zip(&all).zip(&shown).filter(|it| *it.1) {
+        for (i, Line { tone, draws, words }) in lines.iter().enumerate() {
             let first = i == 0;
             let label = if first { words::step(scenario, Some(window.moment)).unwrap_or_default() } else { "" };
             let settling = window.settling.as_ref().filter(|_| first);
             let [median, p99, longest] = settling.map_or_else(Default::default, times);
-            table.row(tone, vec![label.to_string(), words::count(draws), words, median, p99, longest]);
+            table.row(*tone, vec![label.to_string(), words::count(*draws), words.clone(), median, p99, longest]);
         }
     }
-    if rows == 0 {
+    if all.is_empty() {
         paper.say(2, Tone::Plain, "There is no step.");
         return;
     }
     paper.table(&table);
-    if left > 0 {
-        let steps = words::many(left, "step");
-        paper.say(2, Tone::Plain, &format!("... and {steps} more (see outcomes.csv and settling.csv)"));
-    }
+    let left = shown.iter().filter(|shown| !**shown).count();
+    super::more(paper, left, "outcomes.csv and settling.csv");
 }
 
-/// What became of a step's windows: how often, and what.
-fn lines(scenario: &Scenario, window: &WindowReport) -> Vec<(Tone, u64, String)> {
+/// Which windows are shown: where a rule is broken first, then in order, until the rows are used up.
+fn chosen(windows: &[WindowReport], lines: &[Vec<Line>]) -> Vec<bool> {
+    let mut shown = vec![false; windows.len()];
+    let mut rows = 0;
+    for wanted in [true, false] {
+        for (shown, (window, lines)) in shown.iter_mut().zip(windows.iter().zip(lines)) {
+            let broken = window.unsettled > 0 || window.outcomes.iter().any(|outcome| outcome.breaks_rule);
+            if broken == wanted && (rows == 0 || rows + lines.len() <= ROWS) {
+                rows += lines.len();
+                *shown = true;
+            }
+        }
+    }
+    shown
+}
+
+/// One thing that became of a step's windows, and how often.
+struct Line {
+    tone: Tone,
+    draws: u64,
+    words: String,
+}
+
+/// What became of a step's windows; at least one line.
+fn lines(scenario: &Scenario, window: &WindowReport) -> Vec<Line> {
+    let line = |tone, draws, words: &str| Line { tone, draws, words: words.to_string() };
     let nets = telling(scenario, window);
     let mut lines = Vec::new();
     for outcome in window.outcomes.iter().take(OUTCOMES) {
-        let (tone, mark) = if outcome.breaks_rule { (Tone::Bad, "! ") } else { (Tone::Plain, "") };
         let words = if nets.is_empty() { "at rest".into() } else { state(scenario, &nets, &outcome.state) };
-        lines.push((tone, outcome.count, format!("{mark}{words}")));
+        lines.push(match outcome.breaks_rule {
+            true => line(Tone::Bad, outcome.count, &format!("! {words}")),
+            false => line(Tone::Plain, outcome.count, &words),
+        });
     }
     if window.outcomes.len() > OUTCOMES || window.outcomes_truncated {
-        let rest: u64 = window.outcomes.iter().take(OUTCOMES).map(|outcome| outcome.count).sum();
+        let told: u64 = window.outcomes.iter().take(OUTCOMES).map(|outcome| outcome.count).sum();
         let least = if window.outcomes_truncated { "at least " } else { "" };
         let many = window.outcomes.len().saturating_sub(OUTCOMES);
-        lines.push((Tone::Plain, window.settled.saturating_sub(rest), format!("{least}{many} more outcomes")));
+        lines.push(line(Tone::Plain, window.settled.saturating_sub(told), &format!("{least}{many} more outcomes")));
     }
     let ends = [
         (window.oscillating, "oscillating"),
         (window.unsettled, "unsettled (limit reached)"),
         (window.cut, "cut by the next step"),
     ];
-    lines.extend(ends.into_iter().filter(|it| it.0 > 0).map(|(many, words)| (Tone::Unsure, many, words.to_string())));
-    let together = window.reached - window.named.min(window.reached);
+    lines.extend(ends.into_iter().filter(|it| it.0 > 0).map(|(draws, words)| line(Tone::Unsure, draws, words)));
+    let together = window.reached.saturating_sub(window.named);
     if together > 0 {
-        lines.push((Tone::Plain, together, "together with an earlier step".to_string()));
+        lines.push(line(Tone::Plain, together, "together with an earlier step"));
     }
     if lines.is_empty() {
-        lines.push((Tone::Unsure, window.reached, "not reached".to_string()));
+        lines.push(line(Tone::Unsure, window.reached, "not reached"));
     }
     lines
 }
 
 /// Median, 99th percentile and longest, `≥` where a cut window could make them longer.
 fn times(settling: &Settling) -> [String; 3] {
-    let text = |time: crate::time::Span, at_least: bool| format!("{}{}", if at_least { "≥ " } else { "" }, time.rounded());
+    let text =
+        |time: crate::time::Span, at_least: bool| format!("{}{}", if at_least { "≥ " } else { "" }, time.rounded());
     [
         text(settling.median, settling.median_at_least),
         text(settling.p99, settling.p99_at_least),

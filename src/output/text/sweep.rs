@@ -8,13 +8,7 @@ use crate::scenario::Scenario;
 use crate::sweep::SweepReport;
 
 /// The text of `sweep`: the same as that of a review, from the sweep alone.
-pub fn sweep(
-    scenario: &Scenario,
-    asked: &Asked,
-    report: &SweepReport,
-    verdict: &Verdict,
-    page: &Page<'_>,
-) -> String {
+pub fn sweep(scenario: &Scenario, asked: &Asked, report: &SweepReport, verdict: &Verdict, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     say_verdict(&mut paper, verdict);
     body(&mut paper, page, scenario, asked, report);

@@ -98,8 +98,10 @@ impl Axis {
         let step = round_above(shown / 9);
         let mut ticks = Vec::new();
         for piece in &self.pieces {
+            // a piece between cuts needs two labels to show its scale, where it has room for them
+            let wanted = if piece.right - piece.left > 110.0 { 2 } else { 1 };
             let mut fine = step;
-            while fine > 1 && piece.from.next_multiple_of(fine) > piece.to {
+            while fine > 1 && piece.from.next_multiple_of(fine) + (wanted - 1) * fine > piece.to {
                 fine = round_below(fine);
             }
             let mut first = true;
@@ -126,35 +128,42 @@ impl Axis {
     }
 }
 
-/// The stretches to cut out: the few that are far longer than all others, where they leave no room for the rest.
+/// The stretches to cut out: long ones without a change, as long as they leave no room for the rest.
+///
+/// In each round the longest stretches left (those not much shorter than the longest) are cut if together they are a good
+/// part of the picture and everything between them would be crammed without that.
 fn quiet(points: &[u64], pixels: f64) -> Vec<(u64, u64)> {
-    let whole = points[points.len() - 1] - points[0];
+    let (first, last) = (points[0], points[points.len() - 1]);
     let mut gaps: Vec<(u64, u64)> = points.windows(2).map(|pair| (pair[0], pair[1])).collect();
     let length = |gap: &(u64, u64)| gap.1 - gap.0;
     gaps.sort_by_key(|gap| (std::cmp::Reverse(length(gap)), gap.0));
-    let mut sum = 0u64;
-    let mut many = None;
-    for (i, gap) in gaps.iter().enumerate().take(MOST_CUTS) {
-        sum += length(gap);
-        let Some(next) = gaps.get(i + 1) else { return Vec::new() };
-        if length(gap) / 4 >= length(next) && sum as f64 >= 0.4 * whole as f64 {
-            many = Some(i + 1);
+    let mut left = last - first;
+    let mut many = 0;
+    while let Some(longest) = gaps.get(many) {
+        let alike = |gap: &&(u64, u64)| length(gap) as f64 >= 0.4 * length(longest) as f64;
+        let next = many + gaps[many..].iter().take_while(alike).count();
+        let sum: u64 = gaps[many..next].iter().map(length).sum();
+        let crammed = longest_activity(first, last, &gaps[..next]) as f64 / left as f64 * pixels < CRAMMED;
+        if next > MOST_CUTS || next == gaps.len() || (sum as f64) < 0.4 * left as f64 || !crammed {
             break;
         }
+        (many, left) = (next, left - sum);
     }
-    let Some(many) = many else { return Vec::new() };
-    let least = length(&gaps[many - 1]);
+    let Some(least) = many.checked_sub(1).map(|shortest| length(&gaps[shortest])) else { return Vec::new() };
     gaps.truncate(many);
     gaps.sort_unstable();
-    let edges = std::iter::once(points[0]).chain(gaps.iter().map(|gap| gap.1));
-    let ends = gaps.iter().map(|gap| gap.0).chain([points[points.len() - 1]]);
-    let longest = edges.zip(ends).map(|(from, to)| to - from).max().unwrap_or(0);
-    if longest as f64 / whole as f64 * pixels >= CRAMMED {
-        return Vec::new();
-    }
     // both sides of a cut keep a little quiet, so that levels before and after can be seen
-    let keep = (least / 4).min((whole - sum) / (4 * many as u64)).max(1);
+    let keep = (least / 4).min(left / (4 * many as u64)).max(1);
     gaps.into_iter().map(|(from, to)| (from + keep, to - keep)).filter(|(from, to)| from < to).collect()
+}
+
+/// The longest stretch between two of these gaps.
+fn longest_activity(first: u64, last: u64, gaps: &[(u64, u64)]) -> u64 {
+    let mut gaps = gaps.to_vec();
+    gaps.sort_unstable();
+    let begins = std::iter::once(first).chain(gaps.iter().map(|gap| gap.1));
+    let ends = gaps.iter().map(|gap| gap.0).chain([last]);
+    begins.zip(ends).map(|(from, to)| to - from).max().unwrap_or(0)
 }
 
 /// The unit for labels: the scenario's, or another where its numbers would be very long.
@@ -229,6 +238,8 @@ mod tests {
     #[test]
     fn readable_pictures_are_left_alone() {
         assert_eq!(axis(700, &[100, 110, 130, 250, 262, 280, 480, 490, 505]).cuts().count(), 0);
+        let uneven = [100, 103, 104, 115, 130, 131, 180, 183, 190, 195, 206, 230, 235, 290];
+        assert_eq!(axis(300, &uneven).cuts().count(), 0, "gaps of all lengths");
         assert_eq!(axis(1000, &[1000]).cuts().count(), 0, "a single event needs no room");
         assert_eq!(axis(1000, &[]).cuts().count(), 0);
     }

@@ -4,10 +4,11 @@ use maud::{Markup, html};
 
 use super::Picture;
 use super::flags::OFFSET;
-use super::frame::{Bracket, Frame, LINE, Lane, MARGIN, SWING, WIDTH};
+use super::frame::{Frame, LINE, Lane, MARGIN, SPACE, SWING, WIDTH};
 use super::lane::{Line, line, number};
-use crate::output::words::clean;
+use super::places::Bracket;
 use crate::output::ink::{BODY, FINDING, INK, QUIET, REST, SECOND, SMALL};
+use crate::output::words::clean;
 
 /// White behind text that lines pass through.
 const HALO: &str = "paint-order:stroke;stroke:#fff;stroke-width:3px;stroke-linejoin:round";
@@ -33,7 +34,7 @@ pub(super) fn svg(picture: &Picture<'_>, frame: &Frame) -> String {
                     stroke=(QUIET) stroke-width="0.6" {}
             }
             @if let Some(y) = frame.whole_caption {
-                "\n" text x=(number(frame.left - 8.0)) y=(number(y)) text-anchor="end" { "whole circuit" }
+                "\n" text x=(number(frame.left - SPACE)) y=(number(y)) text-anchor="end" { "whole circuit" }
                 @for bracket in &frame.whole { "\n" (draw_bracket(bracket)) }
             }
             "\n" (axis(frame))
@@ -76,7 +77,7 @@ fn grid(frame: &Frame) -> Markup {
 fn steps(picture: &Picture<'_>, frame: &Frame) -> Markup {
     html! {
         g stroke=(INK) fill="none" {
-            @for (flag, step) in frame.flags.flags.iter().zip(&frame.steps) {
+            @for (flag, step) in frame.flags.flags.iter().zip(&frame.steps).filter(|(flag, _)| flag.is_drawn) {
                 @let top = if flag.label.is_empty() { frame.lanes_top } else { flag_base(frame, flag.row) - 9.0 };
                 @let data = format!("M{} {}V{}", number(flag.x), number(top), number(frame.axis_y));
                 "\n" path d=(data) stroke-width=(if flag.is_tick { "0.7" } else { "1" })
@@ -90,8 +91,7 @@ fn steps(picture: &Picture<'_>, frame: &Frame) -> Markup {
 
 /// The base line of the first line of labels in a row.
 fn flag_base(frame: &Frame, row: usize) -> f64 {
-    let pitch = if frame.flags.two_lines { 2.0 * LINE - 2.0 } else { LINE };
-    frame.lanes_top - 8.0 - (row + 1) as f64 * pitch + 11.0
+    frame.lanes_top - 8.0 - (row + 1) as f64 * frame.flags.pitch() + 11.0
 }
 
 fn labels_of_steps(picture: &Picture<'_>, frame: &Frame) -> Markup {
@@ -99,8 +99,9 @@ fn labels_of_steps(picture: &Picture<'_>, frame: &Frame) -> Markup {
         g font-size=(number(SMALL)) {
             @for (flag, step) in frame.flags.flags.iter().zip(&frame.steps) {
                 @if !flag.label.is_empty() {
-                    @let (x, y) = (number(flag.x + OFFSET), flag_base(frame, flag.row));
-                    "\n" g {
+                    @let y = flag_base(frame, flag.row);
+                    @let x = number(if flag.leftwards { flag.x - OFFSET } else { flag.x + OFFSET });
+                    "\n" g text-anchor=(if flag.leftwards { "end" } else { "start" }) {
                         title { (clean(&step.words(picture.scenario))) }
                         text x=(x) y=(number(y)) style=(HALO) { (clean(&flag.label)) }
                         @if !flag.sets.is_empty() {
@@ -120,7 +121,7 @@ fn draw_lane(id: &str, lane: &Lane, frame: &Frame) -> Markup {
     html! {
         g id=(format!("{id}-net-{}", lane.net.0)) {
             title { (format!("{}: {}", lane.full_name, lane.value)) }
-            text x=(number(frame.left - 8.0)) y=(number(middle)) text-anchor="end" font-size=(number(BODY)) {
+            text x=(number(frame.left - SPACE)) y=(number(middle)) text-anchor="end" font-size=(number(BODY)) {
                 (lane.name)
             }
             // further runs first: the front one lies on top
@@ -131,7 +132,7 @@ fn draw_lane(id: &str, lane: &Lane, frame: &Frame) -> Markup {
                 path d=(format!("M{} {}h18", number(end + 3.0), number(lane.bottom - SWING / 2.0)))
                     stroke=(INK) stroke-width="1.6" stroke-dasharray="2 3" {}
             }
-            text x=(number(frame.right + 8.0)) y=(number(middle)) font-size=(number(BODY)) { (lane.value) }
+            text x=(number(frame.right + SPACE)) y=(number(middle)) font-size=(number(BODY)) { (lane.value) }
             @for bracket in &lane.brackets { (draw_bracket(bracket)) }
         }
     }
@@ -190,10 +191,8 @@ fn axis(frame: &Frame) -> Markup {
                 }
             }
         }
-        "\n" text x=(number(frame.left - 8.0)) y=(number(y + 17.0)) text-anchor="end" {
-            (format!("time [{}]", frame.axis.unit))
-        }
-        "\n" text x=(number(frame.right + 8.0)) y=(number(y + 17.0)) { (frame.values_caption) }
+        "\n" text x=(number(MARGIN)) y=(number(y + 17.0)) { (format!("time [{}]", frame.axis.unit)) }
+        "\n" text x=(number(frame.right + SPACE)) y=(number(y + 17.0)) { (frame.values_caption) }
     }
 }
 
@@ -243,7 +242,7 @@ fn rests(frame: &Frame) -> Markup {
             }
         }
         @if frame.rests.iter().any(|rest| rest.is_rest) {
-            "\n" text x=(number(frame.left - 8.0)) y=(number(y + 32.0)) text-anchor="end" fill=(REST) { "settling time" }
+            "\n" text x=(number(MARGIN)) y=(number(y + 32.0)) fill=(REST) { "settling time" }
         }
     }
 }

@@ -79,9 +79,14 @@ pub(super) fn steps(scenario: &Scenario, run: &RunReport) -> Vec<Step> {
     steps
 }
 
-/// How the windows of a run ended, in order. A window that nothing moved in is at rest at once.
+/// How the windows of a run ended, in order. A window that nothing moved in is at rest at once; after a clock edge that
+/// is not worth a mark.
 pub(super) fn endings(scenario: &Scenario, run: &RunReport) -> Vec<Ending> {
-    run.trace.windows.iter().map(|window| ending(scenario, window)).collect()
+    let idle_tick = |window: &Window| {
+        let kind = scenario.stimulus.moments.get(window.moment as usize).map(|moment| moment.kind);
+        matches!(kind, Some(MomentKind::Edge { .. })) && window.settling == Some(Span::ZERO)
+    };
+    run.trace.windows.iter().filter(|window| !idle_tick(window)).map(|window| ending(scenario, window)).collect()
 }
 
 fn ending(scenario: &Scenario, window: &Window) -> Ending {
@@ -126,8 +131,12 @@ fn spot(scenario: &Scenario, asked: &Asked, fact: &Fact) -> Option<Spot> {
         (kind, None) => kind.word().to_string(),
     };
     let value = match words::worst_of(fact) {
+        Some(Worst::Time(period)) if fact.subject.kind == Kind::Oscillation => {
+            Some(format!("period {}", period.rounded()))
+        }
         Some(Worst::Time(span)) => Some(span.rounded()),
-        Some(Worst::Share(share)) => Some(format!("{} of the delay", words::three(share))),
+        Some(Worst::Endless) => Some("for ever".to_string()),
+        Some(Worst::Share(share)) => Some(format!("{} of the delay", words::percent(share))),
         None if fact.subject.kind == Kind::Glitch && to > from => Some(to.since(from).rounded()),
         None => None,
     };

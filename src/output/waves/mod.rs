@@ -4,6 +4,7 @@
 //! on one, and says which nets no sheet shows.
 
 mod axis;
+mod captions;
 mod choose;
 mod csv;
 mod draw;
@@ -11,6 +12,7 @@ mod flags;
 mod frame;
 mod lane;
 mod marks;
+mod places;
 
 use crate::circuit::NetId;
 use crate::findings::Asked;
@@ -85,6 +87,17 @@ impl<'a> Picture<'a> {
     /// The run at the front.
     fn front(&self) -> Option<&'a RunReport> {
         self.runs().next()
+    }
+
+    /// The last instant of all runs, and at least one unit.
+    fn end(&self) -> Time {
+        let mut end = Time::ZERO;
+        for run in self.runs() {
+            end = end.max(run.trace.end);
+            end = run.trace.windows.iter().fold(end, |end, window| end.max(window.stop));
+            end = run.trace.changes.last().map_or(end, |change| end.max(change.at));
+        }
+        if end == Time::ZERO { Time::from_fs(self.scenario.unit.femtoseconds()) } else { end }
     }
 
     fn runs(&self) -> impl Iterator<Item = &'a RunReport> {

@@ -246,13 +246,15 @@ fn not_analysed(context: &mut Context<'_>, templates: &[Template]) {
     let labels = |steps: &[&Step]| name_list(steps.iter().map(|step| step.label.as_str()));
     let waits = which(|step| matches!(step.place, Place::When { .. }));
     if let Some(first) = waits.first() {
-        context.not_analysed(first.mark, format!("`when` of {}: not analysed yet; no run takes place", labels(&waits)));
-        context.cannot_run = true;
+        context.not_analysed(
+            first.mark,
+            format!("`when` of {}: not analysed yet; every run stops before it", labels(&waits)),
+        );
     }
     let bounces = which(|step| step.bounce.is_some());
     if let Some(first) = bounces.first() {
         let labels = labels(&bounces);
-        context.not_analysed(first.mark, format!("`bounce` of {labels}: not analysed yet; inputs change once"));
+        context.not_analysed(first.mark, format!("`bounce` of {labels}: not analysed yet; every run stops before it"));
     }
 }
 

@@ -58,7 +58,9 @@ impl Slow<'_> {
             }
             if bad(stretch) {
                 let moment = stretch.1.map(|window| self.windows[window].moment);
-                let measure = Some(Measure::long(Span::from_fs(length(stretch))));
+                let endless = stretch.2.is_none() && forever;
+                let lasted = Measure::long(Span::from_fs(length(stretch)));
+                let measure = Some(if endless { Measure::ENDLESS } else { lasted });
                 self.fact(Self::subject(Kind::Never, Some(number), None, moment), true, measure);
             }
         }
@@ -80,6 +82,8 @@ impl Slow<'_> {
         let found = self.windows.iter().any(|window| matches!(window.end, End::Oscillating { .. }));
         let answer = match self.open() {
             Some(reason) if !found => Answer::Not(reason),
+            // it may have been on its way to recur
+            None if !found && self.windows.iter().any(|window| window.end == End::Cut) => Answer::Not(Reason::Cut),
             _ => Answer::Judged { broken: !found, slack: None },
         };
         if answer == (Answer::Judged { broken: true, slack: None }) {
@@ -123,7 +127,9 @@ impl Slow<'_> {
                     self.end() == End::Settled && !self.stopped() && !self.scenario.circuit.is_input(rule.to.net);
                 let (distance, slack) = match next {
                     Some(next) => (next - edge.at, -short(max, next - edge.at)),
-                    None if waited > max.fs() || ended => (waited, (-short(max, waited)).min(-1)),
+                    // it never comes
+                    None if ended => (u64::MAX, (-short(max, waited)).min(-1)),
+                    None if waited > max.fs() => (waited, (-short(max, waited)).min(-1)),
                     None => {
                         if !self.scenario.circuit.is_input(rule.to.net) {
                             left = Some(match self.end() {
@@ -142,6 +148,7 @@ impl Slow<'_> {
         for (distance, slack, moment) in &seen {
             if *slack < 0 {
                 let measure = Measure { rank: slack.unsigned_abs(), value: *distance };
+                let measure = if *distance == u64::MAX { Measure::ENDLESS } else { measure };
                 self.fact(Self::subject(Kind::Timing, Some(number), None, *moment), true, Some(measure));
             }
         }
