@@ -163,7 +163,7 @@ fn a_finding_replays_to_the_same_femtosecond() {
         let facts = run["facts"].as_array().unwrap();
         let same = |fact: &&Value| ["kind", "shape", "net", "step"].iter().all(|key| fact[key] == finding[key]);
         let fact = facts.iter().find(same).unwrap_or_else(|| panic!("{case} does not show it: {run}"));
-        assert!(!exact || fact["worst"].to_string() == finding["worst"].to_string(), "{fact} {finding}");
+        assert!(!exact || fact["worst"] == finding["worst"], "{fact} {finding}");
 
         // and once more from the file of the case
         let output = stillgate(folder.path(), &["run", "--delays", &case_file, "--json", "--out", "third"]);

@@ -9,7 +9,7 @@ use std::collections::BTreeMap;
 
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
-pub use verdict::{grouped, verdict};
+pub use verdict::{grouped, verdict, with_typical};
 
 use crate::circuit::NetId;
 use crate::control::Control;
@@ -88,18 +88,24 @@ pub fn review(
         }
         shown.push((index, run));
     }
-    let verdict = verdict(scenario, &sweep);
+    let mut verdict = verdict(scenario, &sweep);
+    if let Some(typical) = &typical {
+        verdict = with_typical(scenario, &sweep, typical, verdict);
+    }
     Ok(Review { asked, states, typical, sweep, shown, verdict })
 }
 
-/// Pictures of one kind, rule and net, at most.
+/// What makes findings alike: kind, rule and which of several, net.
+type Alike = (Kind, Option<(RuleKey, u32)>, Option<NetId>);
+
+/// Pictures of findings that are alike, at most.
 const ALIKE: usize = 2;
 
 /// The findings whose failing case is shown: rule breakers first, one a kind, rule and net before more of the same.
 fn to_show(asked: &Asked, sweep: &SweepReport) -> Vec<usize> {
     let mut first = Vec::new();
     let mut more = Vec::new();
-    let mut seen: BTreeMap<(Kind, Option<(RuleKey, u32)>, Option<NetId>), usize> = BTreeMap::new();
+    let mut seen: BTreeMap<Alike, usize> = BTreeMap::new();
     for (index, finding) in sweep.findings.iter().enumerate() {
         let subject = finding.subject;
         let question = subject.question.and_then(|number| asked.questions.get(number as usize));

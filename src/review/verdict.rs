@@ -2,10 +2,10 @@
 
 use std::collections::BTreeMap;
 
-use super::report::{Call, Verdict};
+use super::report::{Call, RunReport, Verdict};
 use crate::circuit::NetId;
 use crate::delay::Marginal;
-use crate::findings::{Kind, Question, Reason, RuleKey};
+use crate::findings::{Fact, Kind, Question, Reason, RuleKey, Subject};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, SweepReport};
 
@@ -34,6 +34,29 @@ pub fn verdict(scenario: &Scenario, sweep: &SweepReport) -> Verdict {
     }
     let reasons = broken.into_iter().chain(open).collect();
     Verdict { call, sentence, reasons }
+}
+
+/// Adds what only the typical run shows to the verdict of its sweep. Whether such a breach is more than a tie of exactly
+/// equal delays is not known, so no verdict is better than undecided.
+pub fn with_typical(scenario: &Scenario, sweep: &SweepReport, typical: &RunReport, verdict: Verdict) -> Verdict {
+    let drawn = |fact: &Fact| sweep.findings.iter().any(|it| it.subject == fact.subject && it.breaks_rule);
+    let only = typical.facts.iter().filter(|fact| fact.breaks_rule && !drawn(fact)).map(|fact| {
+        let rule = fact.subject.question.and_then(|q| sweep.rules.get(q as usize));
+        let what = what(scenario, &fact.subject, rule.map(|rule| &rule.question));
+        format!("with typical delays, but in no draw: {what} (exactly equal delays?)")
+    });
+    let only: Vec<String> = only.collect();
+    let Verdict { call, sentence, mut reasons } = verdict;
+    match (only.first(), call) {
+        (Some(first), Call::NoFailureFound | Call::Proved) => {
+            let sentence = format!("undecided: {first}; {sentence}");
+            Verdict { call: Call::Undecided, sentence, reasons: only }
+        }
+        _ => {
+            reasons.extend(only);
+            Verdict { call, sentence, reasons }
+        }
+    }
 }
 
 fn draws_word(draw: Marginal, n: u64) -> &'static str {
@@ -90,11 +113,19 @@ fn broken(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
 }
 
 fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -> String {
-    let subject = finding.subject;
-    let question = rule.map(|rule| &rule.question);
-    let whole = rule.filter(|rule| rule.question.moment.is_none());
+    let what = what(scenario, &finding.subject, rule.map(|rule| &rule.question));
+    // a rule for the whole run may break after several steps: its share is that of the rule
+    match rule.filter(|rule| rule.question.moment.is_none() && rule.broken > finding.count) {
+        Some(rule) => {
+            format!("{what} and elsewhere in {} of {} draws", grouped(rule.broken), grouped(rule.judged))
+        }
+        None => format!("{what} in {} of {} draws", grouped(finding.count), grouped(finding.of)),
+    }
+}
+
+/// What was found, where, after which step.
+fn what(scenario: &Scenario, subject: &Subject, question: Option<&Question>) -> String {
     let circuit = &scenario.circuit;
-    let net = subject.net.map(|net| format!(" at {}", circuit.name(net)));
     let what = match (question.and_then(|q| q.name.as_ref()), subject.shape) {
         (Some(name), _) => format!("\"{name}\" ({})", subject.kind.word()),
         (None, Some(shape)) => format!("{} {}", shape.word(), subject.kind.word()),
@@ -109,19 +140,12 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
             }
         }
     };
+    let net = subject.net.map_or_else(String::new, |net| format!(" at {}", circuit.name(net)));
     let step = match subject.moment {
         Some(moment) => format!(" after \"{}\"", scenario.stimulus.moments[moment as usize].label),
         None => String::new(),
     };
-    let net = net.unwrap_or_default();
-    // a rule for the whole run may break after several steps: its share is that of the rule
-    match whole {
-        Some(rule) if rule.broken > finding.count => {
-            let (broken, judged) = (grouped(rule.broken), grouped(rule.judged));
-            format!("{what}{net}{step} and elsewhere in {broken} of {judged} draws")
-        }
-        _ => format!("{what}{net}{step} in {} of {} draws", grouped(finding.count), grouped(finding.of)),
-    }
+    format!("{what}{net}{step}")
 }
 
 /// Questions that belong together: a rule, which of several, its net, and the step if it is a clause of its own.

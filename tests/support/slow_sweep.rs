@@ -290,7 +290,7 @@ impl Whole<'_> {
     }
 
     /// Windows of a moment from rest to rest, without X, by the state before.
-    fn from_rest_to_rest(&self, moment: u32) -> BTreeMap<State, Vec<(u64, &HeardWindow)>> {
+    fn rest_to_rest(&self, moment: u32) -> BTreeMap<State, Vec<(u64, &HeardWindow)>> {
         let mut all: BTreeMap<State, Vec<(u64, &HeardWindow)>> = BTreeMap::new();
         for (sample, window) in self.named(moment) {
             if let (Some(before), End::Settled, false) = (&window.before, window.end, window.state.has_unknown()) {
@@ -302,7 +302,7 @@ impl Whole<'_> {
 
     fn races(&self, moment: u32) -> Option<Race> {
         let (mut strays, mut outcomes, mut of, mut forbidden) = (Vec::new(), BTreeSet::new(), 0, false);
-        let groups = self.from_rest_to_rest(moment);
+        let groups = self.rest_to_rest(moment);
         for group in groups.values() {
             of += group.len() as u64;
             let states: BTreeSet<&State> = group.iter().map(|it| &it.1.state).collect();
@@ -350,7 +350,7 @@ impl Whole<'_> {
     /// Samples whose loop nets changed in another order, where the state at the end is one.
     fn orders(&self, moment: u32) -> (Vec<u64>, u64) {
         let (mut strays, mut of) = (Vec::new(), 0);
-        for group in self.from_rest_to_rest(moment).values() {
+        for group in self.rest_to_rest(moment).values() {
             of += group.len() as u64;
             if group.iter().all(|it| it.1.state == group[0].1.state) {
                 strays.extend(not_the_commonest(group, |window| window.order));

@@ -259,7 +259,7 @@ impl<'a> Slow<'a> {
     }
 
     /// The window of these nets that begins with this whole window, whether it touches them or not.
-    fn from_window(&self, from: Option<usize>, cone: &NetSet) -> NetWindow {
+    fn window_from(&self, from: Option<usize>, cone: &NetSet) -> NetWindow {
         let after = from.map_or(0, |from| from + 1);
         let to = (after..self.windows.len()).find(|w| self.opens(*w, cone)).unwrap_or(self.windows.len());
         let quiet = |pending: &[NetId]| !pending.iter().any(|net| cone.contains(*net));
@@ -276,9 +276,9 @@ impl<'a> Slow<'a> {
     fn net_windows(&self, cone: &NetSet) -> Vec<NetWindow> {
         // power-up is the first window of every net
         let power_up = self.scenario.begin_window().is_some();
-        let mut all = vec![self.from_window(power_up.then_some(0), cone)];
+        let mut all = vec![self.window_from(power_up.then_some(0), cone)];
         while all.last().expect("one").to < self.windows.len() {
-            all.push(self.from_window(Some(all.last().expect("one").to), cone));
+            all.push(self.window_from(Some(all.last().expect("one").to), cone));
         }
         all
     }

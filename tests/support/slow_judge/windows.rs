@@ -54,7 +54,7 @@ impl Slow<'_> {
         let Some(Pattern::OneOf(expected)) = &question.pattern else { panic!("{question:?}") };
         let Some(window) = self.window_of(moment) else { return };
         let nets: Vec<NetId> = expected.alternatives.iter().flatten().map(|(net, _)| *net).collect();
-        let window = self.from_window(Some(window), &self.scenario.circuit.cone(&nets));
+        let window = self.window_from(Some(window), &self.scenario.circuit.cone(&nets));
         let fits: Vec<Option<bool>> = expected.alternatives.iter().map(|it| shows(&window.state, it)).collect();
         let answer = match self.invalid(&window) {
             Some(reason) => Answer::Not(reason),
@@ -72,7 +72,7 @@ impl Slow<'_> {
         let moment = question.moment.expect("a step");
         let Some(Pattern::Count(count)) = &question.pattern else { panic!("{question:?}") };
         let Some(from) = self.window_of(moment) else { return };
-        let window = self.from_window(Some(from), &self.scenario.circuit.cone(&[count.net]));
+        let window = self.window_from(Some(from), &self.scenario.circuit.cone(&[count.net]));
         let moves = self.moves_in(count.net, &window);
         let before = self.windows[from].opening.state[count.net.index()];
         let answer = if let Some(reason) = self.invalid(&window) {
