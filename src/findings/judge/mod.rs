@@ -389,8 +389,12 @@ impl<S: Sink> Judge<S> {
         for said_at in &self.oscillation_of {
             let question = self.oscillation_questions[*said_at as usize];
             let said = self.oscillation[*said_at as usize];
+            // where one is required its absence is a fact of the question, and its presence is not
             let fact = |broken: bool, measure: Option<Measure>| Fact {
-                subject: Subject { moment: Some(*said_at), ..subject(Kind::Oscillation, question) },
+                subject: Subject {
+                    moment: Some(*said_at),
+                    ..subject(Kind::Oscillation, if broken { question } else { NONE })
+                },
                 breaks_rule: broken,
                 measure,
                 place: Some((closing.start, closing.at)),

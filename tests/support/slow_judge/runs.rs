@@ -229,6 +229,7 @@ impl Slow<'_> {
                     for moment in at {
                         let question = self.asked.find(RuleKey::Oscillation, 0, None, Some(moment));
                         let breaks = self.permission(moment) == Oscillation::Forbidden;
+                        let question = question.filter(|_| breaks);
                         let subject = Self::subject(Kind::Oscillation, question, None, Some(moment));
                         self.fact(subject, breaks, Some(Measure::long(period)));
                     }
