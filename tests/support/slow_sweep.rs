@@ -264,7 +264,12 @@ impl Whole<'_> {
                 let (subject, breaks_rule) = (*subject, fact.breaks_rule);
                 let new = || Found { subject, breaks_rule, samples: Vec::new(), of: self.judged(&subject) };
                 let measure = fact.worst.first().copied();
-                all.entry(subject).or_insert_with(new).samples.push((sample as u64, measure));
+                let found = all.entry(subject).or_insert_with(new);
+                assert_eq!(
+                    found.breaks_rule, breaks_rule,
+                    "{subject:?} breaks a rule in one sample and not in another"
+                );
+                found.samples.push((sample as u64, measure));
             }
         }
         all.into_values().collect()
