@@ -1,7 +1,7 @@
 //! Judges of edges over a whole run: distances between edges, widths of pulses.
 
 use super::sink::Sink;
-use super::states::reason_of;
+use super::span::reason_of;
 use crate::circuit::NetId;
 use crate::engine::End;
 use crate::findings::{Fact, Kind, Measure, Reason, Subject};

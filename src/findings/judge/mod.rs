@@ -10,7 +10,7 @@ mod states;
 use edges::{MinPulse, Timing};
 use nets::{Count, NONE, Settle, Watch};
 pub use sink::{Answers, Seen, Sink};
-use span::{Cone, NetWindow, Shut};
+use span::{Cone, NetWindow, Shut, reason_of};
 use states::{Expect, Never, NotAtRest};
 pub use states::{Match, matches, matches_any};
 
@@ -91,7 +91,8 @@ pub struct Judge<S> {
 
 const MIX: u64 = 0x9E37_79B9_7F4A_7C15;
 
-fn mix(hash: u64, word: u64) -> u64 {
+/// One more change in the order of loop nets. Quick, and never kept: only the hash in the tally has to last.
+fn in_order(hash: u64, word: u64) -> u64 {
     (hash ^ word).wrapping_mul(MIX).rotate_left(29)
 }
 
@@ -215,7 +216,7 @@ impl<S: Sink> Judge<S> {
                         sink.fact(fact(true, None));
                     }
                 }
-                end => sink.not_judged(question, states::reason_of(end)),
+                end => sink.not_judged(question, reason_of(end)),
             }
         }
         if let End::Unsettled(_) = closing.end {
@@ -232,7 +233,7 @@ impl<S: Sink> Judge<S> {
                 End::Oscillating { .. } if spared => {}
                 End::Settled if unresolved => sink.not_judged(question, Reason::Unresolved),
                 End::Settled => sink.judged(question, false, None),
-                end => sink.not_judged(question, states::reason_of(end)),
+                end => sink.not_judged(question, reason_of(end)),
             }
         }
 
@@ -366,7 +367,7 @@ impl<S: Sink> Observer for Judge<S> {
     fn change(&mut self, at: Time, net: NetId, new: Value, _cause: ()) {
         let n = net.index();
         if self.in_loop[n] {
-            self.order = mix(self.order, u64::from(net.0) + 1);
+            self.order = in_order(self.order, u64::from(net.0) + 1);
             self.order_open = true;
         }
         let (first, last) = (self.ear_start[n] as usize, self.ear_start[n + 1] as usize);
@@ -411,7 +412,7 @@ impl<S: Sink> Observer for Judge<S> {
     #[inline]
     fn batch(&mut self, at: Time) {
         if self.order_open {
-            self.order = mix(self.order, u64::MAX);
+            self.order = in_order(self.order, u64::MAX);
             self.order_open = false;
         }
         let late = &mut self.late;

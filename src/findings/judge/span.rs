@@ -55,10 +55,15 @@ impl NetWindow {
         if !cone.holds_any(shut.pending) {
             return None;
         }
-        Some(match shut.end {
-            End::Oscillating { .. } => Reason::Oscillating,
-            End::Unsettled(_) => Reason::Unsettled,
-            End::Settled | End::Cut => Reason::Cut,
-        })
+        Some(reason_of(shut.end))
+    }
+}
+
+/// The reason for not judging that the end of a window with events pending gives.
+pub(super) fn reason_of(end: End) -> Reason {
+    match end {
+        End::Oscillating { .. } => Reason::Oscillating,
+        End::Unsettled(_) => Reason::Unsettled,
+        End::Settled | End::Cut => Reason::Cut,
     }
 }

@@ -1,7 +1,7 @@
 //! Judges of partial states: where nets must rest, where they must not, what must never show.
 
 use super::sink::Sink;
-use super::span::{Cone, NetWindow, Shut};
+use super::span::{Cone, NetWindow, Shut, reason_of};
 use crate::engine::End;
 use crate::findings::{Fact, Kind, Measure, Reason, Subject};
 use crate::logic::{State, Value};
@@ -244,14 +244,5 @@ impl Never {
         } else {
             sink.not_judged(self.question, open.unwrap_or(Reason::Unresolved));
         }
-    }
-}
-
-/// The reason for not judging that the end of a run gives.
-pub(super) fn reason_of(end: End) -> Reason {
-    match end {
-        End::Oscillating { .. } => Reason::Oscillating,
-        End::Unsettled(_) => Reason::Unsettled,
-        End::Settled | End::Cut => Reason::Cut,
     }
 }
