@@ -55,7 +55,7 @@
 //!
 //! # The floors, lowest first
 //!
-//! [`time`], [`logic`], [`control`] · [`circuit`] · [`delay`] · [`scenario`] · [`instance`] · [`statics`] · [`engine`] ·
+//! [`time`], [`logic`], [`control`] · [`circuit`] · [`delay`] · [`scenario`] · [`instance`] · [`statics`] · [`flow`] · [`engine`] ·
 //! [`findings`] · [`sweep`] · [`review`] · [`reader`], [`output`] · [`cli`]. A module uses only floors below its own.
 //!
 //! # What is not modelled
@@ -72,6 +72,7 @@ pub mod control;
 pub mod delay;
 pub mod engine;
 pub mod findings;
+pub mod flow;
 pub mod instance;
 pub mod logic;
 pub mod output;

@@ -48,6 +48,28 @@ impl fmt::Display for Value {
     }
 }
 
+/// The shape of a glitch or hazard: from the values before and after, and the number of transitions between.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord, Serialize, Deserialize)]
+pub enum Shape {
+    /// 0 before and after, and a pulse between.
+    Static0,
+    /// 1 before and after, and a pulse between.
+    Static1,
+    /// One change is wanted, three or more were seen.
+    Dynamic,
+}
+
+impl Shape {
+    /// The word used in every file and text.
+    pub const fn word(self) -> &'static str {
+        match self {
+            Shape::Static0 => "static-0",
+            Shape::Static1 => "static-1",
+            Shape::Dynamic => "dynamic",
+        }
+    }
+}
+
 /// A fixed number of bits, 64 a word; bits past the length are 0.
 #[derive(Clone, Debug, Default, PartialEq, Eq, Hash, PartialOrd, Ord, Serialize, Deserialize)]
 pub struct Bits(Box<[u64]>);

@@ -8,6 +8,7 @@ mod judge;
 mod pulses;
 mod words;
 
+pub use crate::logic::Shape;
 pub use asked::{Asked, Pattern, Question, RuleKey};
 pub use judge::{Answers, Judge, Match, Seen, Sink, matches, matches_any};
-pub use words::{Fact, Kind, Measure, Reason, Shape, Subject};
+pub use words::{Fact, Kind, Measure, Reason, Subject};

@@ -3,6 +3,7 @@
 use serde::{Deserialize, Serialize};
 
 use crate::circuit::NetId;
+use crate::logic::Shape;
 use crate::time::{Span, Time};
 
 /// What kind of thing was found.
@@ -86,28 +87,6 @@ impl Kind {
             Kind::Unsettled => "unsettled",
             Kind::Unresolved => "unresolved",
             Kind::NonCriticalRace => "non-critical-race",
-        }
-    }
-}
-
-/// The shape of a glitch: from the values before and after, and the number of transitions between.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord, Serialize, Deserialize)]
-pub enum Shape {
-    /// 0 before and after, and a pulse between.
-    Static0,
-    /// 1 before and after, and a pulse between.
-    Static1,
-    /// One change is wanted, three or more were seen.
-    Dynamic,
-}
-
-impl Shape {
-    /// The word used in every file and text.
-    pub const fn word(self) -> &'static str {
-        match self {
-            Shape::Static0 => "static-0",
-            Shape::Static1 => "static-1",
-            Shape::Dynamic => "dynamic",
         }
     }
 }

@@ -3,11 +3,13 @@
 //! A stable state gives every net a value such that every gate's output equals its function. [`StateSet`] holds all of
 //! them, [`rest`] finds the one that fits given inputs, [`is_stable`] tests one, and [`ternary`] computes with X.
 
+mod change;
 mod diagram;
 mod fewest;
 mod functions;
 mod multiplicity;
 mod order;
+mod outcome;
 mod product;
 mod projection;
 mod relation;
@@ -17,6 +19,8 @@ mod state_variables;
 pub mod ternary;
 mod walk;
 
+pub use change::Change;
+pub use outcome::{Outcome, Race, bound, outcome};
 pub use product::Rows;
 pub use projection::Projection;
 pub use rest::{NoRest, rest};
