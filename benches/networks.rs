@@ -66,8 +66,9 @@ pub fn array(side: usize) -> Circuit {
             drawing.gate(format!("{line}n{bit}"), Function::Not, vec![format!("{line}{bit}")]);
         }
         for at in 0..side {
-            let mut pins: Vec<String> =
-                (0..bits).map(|bit| if at >> bit & 1 == 1 { format!("{line}{bit}") } else { format!("{line}n{bit}") }).collect();
+            let mut pins: Vec<String> = (0..bits)
+                .map(|bit| if at >> bit & 1 == 1 { format!("{line}{bit}") } else { format!("{line}n{bit}") })
+                .collect();
             if line == "r" {
                 drawing.gate(format!("row{at}"), Function::And, pins.clone());
                 pins.push("w".into());

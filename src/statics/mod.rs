@@ -4,6 +4,7 @@
 //! them, [`rest`] finds the one that fits given inputs, [`is_stable`] tests one, and [`ternary`] computes with X.
 
 mod change;
+mod conjunction;
 mod diagram;
 mod fewest;
 mod functions;
