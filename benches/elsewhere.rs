@@ -7,8 +7,8 @@ use stillgate::circuit::{Circuit, Function, GateId, NetId};
 
 /// The stable states of a circuit of ands, ors, nots, exclusive ors and their complements.
 pub struct Elsewhere {
-    space: BddVariableSet,
-    variables: Vec<BddVariable>,
+    /// of each net that is one
+    variables: Vec<Option<BddVariable>>,
     states: Bdd,
     nets: Vec<Option<Bdd>>,
 }
@@ -26,10 +26,11 @@ impl Elsewhere {
             }
         }
         let space = BddVariableSet::new_anonymous(order.len() as u16);
-        let variables = space.variables();
+        let mut variables = vec![None; circuit.net_count()];
         let mut nets: Vec<Option<Bdd>> = vec![None; circuit.net_count()];
-        for (net, variable) in order.iter().zip(&variables) {
-            nets[net.index()] = Some(space.mk_var(*variable));
+        for (net, variable) in order.iter().zip(space.variables()) {
+            variables[net.index()] = Some(variable);
+            nets[net.index()] = Some(space.mk_var(variable));
         }
         let mut relations = Vec::new();
         let mut bound = Vec::new();
@@ -52,7 +53,7 @@ impl Elsewhere {
             relations.push(a.and(&b));
         }
         let states = relations.pop().unwrap_or_else(|| space.mk_true());
-        Elsewhere { space, variables, states, nets }
+        Elsewhere { variables, states, nets }
     }
 
     /// How many there are.
@@ -72,9 +73,12 @@ impl Elsewhere {
         sets.iter().filter(|set| !set.is_false()).count()
     }
 
-    /// Number of variables.
-    pub fn variables(&self) -> usize {
-        self.variables.len().max(self.space.num_vars() as usize)
+    /// How many value vectors these variables (inputs and feedback nets) take in them.
+    pub fn taken(&self, nets: &[NetId]) -> BigUint {
+        let asked: Vec<Option<BddVariable>> = nets.iter().map(|net| self.variables[net.index()]).collect();
+        let others: Vec<BddVariable> =
+            self.variables.iter().flatten().copied().filter(|variable| !asked.contains(&Some(*variable))).collect();
+        number(&self.states.exists(&others)) >> others.len()
     }
 }
 
