@@ -3,6 +3,7 @@
 //! program or by hand, "from memory" a source that was not at hand, "common practice, no source" a fact of the trade.
 
 mod engine;
+mod hundreds_of_gates;
 mod large_networks;
 mod networks;
 mod random_networks;
