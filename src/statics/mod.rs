@@ -3,6 +3,7 @@
 //! A stable state gives every net a value such that every gate's output equals its function. [`StateSet`] holds all of
 //! them, [`rest`] finds the one that fits given inputs, [`is_stable`] tests one, and [`ternary`] computes with X.
 
+pub mod built;
 mod change;
 mod diagram;
 mod fewest;
@@ -17,6 +18,7 @@ mod rest;
 mod state_set;
 mod state_variables;
 pub mod ternary;
+pub mod transients;
 mod walk;
 
 pub use change::Change;
