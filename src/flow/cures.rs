@@ -72,6 +72,9 @@ impl<'a> Cures<'a> {
         }?;
         let value = shape == Shape::Static1;
         let (row, moves) = cone.see(state, |net| moving.contains(&net));
+        if cone.never_leaves(net, value) {
+            return None;
+        }
         self.spend((cone.sources.len() as u64) << cone.sources.len())?;
         let held = cone.prime(row, moves, value)?;
         let literals: Vec<(NetId, bool)> = held.iter().map(|&at| (cone.sources[at], row >> at & 1 == 1)).collect();
@@ -231,6 +234,14 @@ impl Cone {
             self.sources.iter().enumerate().fold(0, |bits, (at, net)| bits | u32::from(of(*net)) << at)
         };
         (bits(&|net| state.get(net.index())), bits(&moves))
+    }
+
+    /// Does the function of a feedback net never ask it to leave this value? If it still takes the other in some stable
+    /// state, what leads there is the pulse itself (where the delay of the loop is decides), and must not be covered.
+    fn never_leaves(&self, net: NetId, value: bool) -> bool {
+        let Some(own) = self.sources.iter().position(|source| *source == net) else { return false };
+        let value_at = |row: usize| self.function[row >> 6] >> (row & 63) & 1 == 1;
+        (0..1usize << self.sources.len()).filter(|row| (row >> own & 1 == 1) == value).all(|row| value_at(row) == value)
     }
 
     /// The sources that have to hold their values of `row` for the function to have this value; none that moves.

@@ -322,3 +322,77 @@ impl Found<'_> {
         list
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::circuit::{Function, GateSpec};
+    use crate::flow::{FlowState, Reached};
+    use crate::statics::{Change, Race};
+
+    fn gate(name: &str, function: Function, pins: &[u32]) -> GateSpec {
+        GateSpec { name: name.into(), function, pins: pins.iter().map(|pin| NetId(*pin)).collect() }
+    }
+
+    /// One state, all inputs at 0 and the gates at rest, and changes of these inputs from it.
+    fn table(circuit: &Circuit, changes: &[&[u32]]) -> FlowTable {
+        let mut values = Bits::zeros(circuit.net_count());
+        for gate in circuit.evaluation_order() {
+            let value = circuit.wants(*gate, |net| values.get(net.index()));
+            values.set(circuit.net_of(*gate).index(), value);
+        }
+        let steps = changes.iter().map(|nets| Transition {
+            moment: Some(0),
+            from: 0,
+            change: Change { set: nets.iter().map(|net| (NetId(*net), true)).collect(), apart: false },
+            to: Reached::Exact { states: vec![0], cycles: 0, race: Race::None },
+            essential: None,
+            sure: true,
+        });
+        let steps = steps.collect();
+        FlowTable { states: vec![FlowState { values, reachable: true, explored: true }], steps, ..FlowTable::default() }
+    }
+
+    #[test]
+    fn more_inputs_than_all_their_orders_are_looked_at_for_are_not_judged() {
+        let names: Vec<String> = (0..14).map(|i| format!("i{i}")).collect();
+        let pins: Vec<u32> = (0..14).collect();
+        let gates = vec![gate("odd", Function::Xor, &pins), gate("few", Function::Xor, &pins[..3])];
+        let circuit = Circuit::new(&names, gates, vec![]).unwrap();
+        let watched: Vec<NetId> = circuit.nets().skip(14).collect();
+        let found = hazards(&circuit, &watched, &table(&circuit, &[&pins[..]]), &Control::default()).unwrap();
+        assert_eq!(found.not_judged, 1);
+        assert!(!found.truncated);
+        // only the inputs that the net can see count
+        assert_eq!(found.list.iter().map(|h| (h.net, h.cause)).collect::<Vec<_>>(), [(NetId(15), Cause::Function)]);
+        let twelve = hazards(&circuit, &watched, &table(&circuit, &[&pins[..12]]), &Control::default()).unwrap();
+        assert_eq!((twelve.list.len(), twelve.not_judged), (2, 0));
+    }
+
+    #[test]
+    fn a_dynamic_word_that_is_not_counted_to_the_end_is_not_judged() {
+        // 21 nets of one input each, half of them inverted; 11 at 0 before, 11 at 1 after
+        let mut gates: Vec<GateSpec> = (0..21)
+            .map(|at| gate(&format!("w{at}"), if at < 10 { Function::Not } else { Function::Buf }, &[0]))
+            .collect();
+        gates.push(gate("most", Function::Majority, &(1..22).collect::<Vec<_>>()));
+        let circuit = Circuit::new(&["a"], gates, vec![]).unwrap();
+        let found = hazards(&circuit, &[NetId(22)], &table(&circuit, &[&[0]]), &Control::default()).unwrap();
+        assert_eq!((found.list.len(), found.not_judged), (0, 1));
+    }
+
+    #[test]
+    fn a_limit_that_cuts_is_named_and_a_wish_to_stop_is_heard() {
+        let gates = vec![gate("n", Function::Not, &[0]), gate("f", Function::And, &[0, 1])];
+        let circuit = Circuit::new(&["a"], gates, vec![]).unwrap();
+        let table = table(&circuit, &[&[0], &[0]]);
+        let all = within(&circuit, &[NetId(2)], &table, &Control::default(), 1000).unwrap();
+        assert_eq!((all.list[0].states, all.truncated), (2, false));
+        // the first transition takes two steps for the inverter and three for the AND
+        let cut = within(&circuit, &[NetId(2)], &table, &Control::default(), 5).unwrap();
+        assert_eq!((cut.list[0].states, cut.truncated), (1, true));
+        let control = Control::default();
+        control.cancel.store(true, std::sync::atomic::Ordering::Relaxed);
+        assert_eq!(hazards(&circuit, &[NetId(2)], &table, &control), Err(GaveUp::Cancelled));
+    }
+}
