@@ -159,7 +159,7 @@ fn by_lattice(form: &Compiled, base: u64, moving: &[(u64, Word)], work: &mut u64
         match product(&sizes) {
             Some(positions) => break Some(positions),
             None => match sizes.iter_mut().filter(|size| **size > 3).max() {
-                Some(size) => *size = (*size / 2 & !1) + (*size & 1),
+                Some(size) => *size = ((*size / 2) & !1) + (*size & 1),
                 None => break None,
             },
         }
