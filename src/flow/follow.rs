@@ -27,19 +27,22 @@ pub fn winners_are_valid(scenario: &Scenario) -> bool {
 }
 
 /// What may follow a change from a stable state of the scenario's circuit: exact where that is valid and within budget,
-/// else the ternary bound. `bounced`: the inputs move more than once, which only the bound covers.
+/// else the ternary bound. `restless`: inputs may move back and forth before they stay, which only the bound covers.
 ///
 /// Errors: the two methods contradict each other, or the caller asked to stop.
 pub fn follow(
     scenario: &Scenario,
     from: &Bits,
     change: &Change,
-    bounced: bool,
+    restless: bool,
     control: &Control,
 ) -> Result<Outcome, FlowError> {
     let circuit = &*scenario.circuit;
+    if restless {
+        return Ok(Outcome::Bound(statics::bound_restless(circuit, from, change).1));
+    }
     let bound = statics::bound(circuit, from, change).1;
-    if bounced || !winners_are_valid(scenario) {
+    if !winners_are_valid(scenario) {
         return Ok(Outcome::Bound(bound));
     }
     let outcome = statics::outcome(circuit, from, change, control).map_err(|_: GaveUp| FlowError::Cancelled)?;

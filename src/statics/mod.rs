@@ -21,7 +21,7 @@ mod walk;
 mod winners;
 
 pub use change::Change;
-pub use outcome::{Outcome, Race, bound, outcome};
+pub use outcome::{Outcome, Race, bound, bound_restless, outcome};
 pub use product::Rows;
 pub use projection::Projection;
 pub use rest::{NoRest, rest};
