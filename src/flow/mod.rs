@@ -5,8 +5,10 @@
 //! Everything is said of the circuit alone: a hazard is the ability to glitch, not a glitch that was seen.
 
 mod follow;
+mod tour;
 
 pub use follow::{FlowError, follow, outside, winners_are_valid};
+pub use tour::{MOST_STEPS, Tour, tour};
 
 use crate::circuit::NetId;
 use crate::logic::{Bits, Shape, State};

@@ -122,7 +122,8 @@ impl Seen<'_> {
             MomentKind::PowerUp | MomentKind::Edge { .. } => &[],
         };
         let skew = steps.iter().any(|step| step.skew.is_some());
-        if !steps.iter().any(|step| step.bounce.is_some()) && !(skew && steps.len() > 1) {
+        let restless = steps.iter().any(|step| step.bounce.is_some()) || (skew && steps.len() > 1);
+        if !restless {
             return (Change { apart: skew, ..change }, false);
         }
         let clocks = change.set.into_iter();
