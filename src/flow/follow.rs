@@ -1,22 +1,12 @@
 //! What may follow a change of a scenario's circuit, by the method that its parts allow.
 
+use super::FlowError;
 use crate::circuit::Circuit;
 use crate::control::Control;
 use crate::delay::Filter;
 use crate::logic::{Bits, State};
 use crate::scenario::Scenario;
 use crate::statics::{self, Change, GaveUp, Outcome};
-
-/// Why the delay-free view came to no end.
-#[derive(Clone, Debug, PartialEq, Eq, thiserror::Error)]
-pub enum FlowError {
-    /// Two methods contradict each other: a defect of the program.
-    #[error("{0}")]
-    Contradiction(String),
-    /// The caller asked to stop.
-    #[error("stopped on request")]
-    Cancelled,
-}
 
 /// Is the multiple-winner method valid for this scenario: is every gate inertial, and has no wire a delay? Else a pulse may
 /// arrive after its cause is over, and only ternary simulation bounds what follows (Mendler, Shiple, Berry, "Constructive

@@ -13,16 +13,14 @@ mod automaton;
 mod classes;
 mod components;
 mod coverage;
+mod follow;
 mod outcomes;
 mod table;
 mod timeline;
-
-pub use timeline::{Group, Timeline};
-
-mod follow;
 mod tour;
 
-pub use follow::{FlowError, follow, outside, winners_are_valid};
+pub use follow::{follow, outside, winners_are_valid};
+pub use timeline::{Group, Timeline};
 pub use tour::{MOST_STEPS, Tour, tour};
 
 use crate::circuit::NetId;

@@ -4,7 +4,7 @@ use super::ReviewError;
 use crate::circuit::NetId;
 use crate::control::Control;
 use crate::engine::{End, Trace};
-use crate::flow::{FlowError, follow, outside};
+use crate::flow::{follow, outside};
 use crate::logic::{Bits, State};
 use crate::scenario::{MomentKind, Place, Scenario, Step};
 use crate::statics::{self, Change, Outcome};
@@ -13,15 +13,6 @@ use crate::time::Span;
 
 /// Values looked at, at most: passages times nets. Checking is a safeguard, and may not cost more than the sweep.
 const LOOKED_AT: usize = 1 << 24;
-
-impl From<FlowError> for ReviewError {
-    fn from(error: FlowError) -> ReviewError {
-        match error {
-            FlowError::Contradiction(what) => ReviewError::Contradiction(what),
-            FlowError::Cancelled => ReviewError::Cancelled,
-        }
-    }
-}
 
 /// Checks every kept passage of a sweep: from the state before, by the change of the inputs, to the settled state.
 pub(super) fn sweep(scenario: &Scenario, tally: &Tally, control: &Control) -> Result<(), ReviewError> {
