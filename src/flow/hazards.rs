@@ -23,11 +23,10 @@
 use rustc_hash::FxHashMap;
 
 use super::cures::Cures;
-use super::{Cause, FlowTable, Hazard, StateNumber, Transition};
+use super::{Cause, FlowError, FlowTable, Hazard, StateNumber, Transition};
 use crate::circuit::{Circuit, GateId, NetId};
 use crate::control::Control;
 use crate::logic::{Bits, Shape};
-use crate::statics::GaveUp;
 use crate::statics::built::Built;
 use crate::statics::transients::{Exhausted, Open, Transients, Verdict, longest_alternation};
 
@@ -58,8 +57,13 @@ pub struct Hazards {
 /// Only gates that may move are looked at, so the time goes with what moves, not with the circuit; after [`MAX_WORK`]
 /// steps it ends, and the result says so.
 ///
-/// Errors: only [`GaveUp::Cancelled`]. Panics if the table is not one of this circuit.
-pub fn hazards(circuit: &Circuit, watched: &[NetId], table: &FlowTable, control: &Control) -> Result<Hazards, GaveUp> {
+/// Errors: only [`FlowError::Cancelled`]. Panics if the table is not one of this circuit.
+pub fn hazards(
+    circuit: &Circuit,
+    watched: &[NetId],
+    table: &FlowTable,
+    control: &Control,
+) -> Result<Hazards, FlowError> {
     within(circuit, watched, table, control, MAX_WORK)
 }
 
@@ -69,7 +73,7 @@ fn within(
     table: &FlowTable,
     control: &Control,
     most: u64,
-) -> Result<Hazards, GaveUp> {
+) -> Result<Hazards, FlowError> {
     let mut judged = vec![false; circuit.net_count()];
     for net in watched.iter().chain(circuit.feedback()) {
         judged[net.index()] = !circuit.is_input(*net);
@@ -97,7 +101,7 @@ fn within(
     let mut truncated = false;
     for transition in table.steps.iter().chain(&table.single) {
         if control.cancelled() {
-            return Err(GaveUp::Cancelled);
+            return Err(FlowError::Cancelled);
         }
         if search.transition(transition, &table.states[transition.from as usize].values).is_err() {
             truncated = true;
@@ -393,6 +397,6 @@ mod tests {
         assert_eq!((cut.list[0].states, cut.truncated), (1, true));
         let control = Control::default();
         control.cancel.store(true, std::sync::atomic::Ordering::Relaxed);
-        assert_eq!(hazards(&circuit, &[NetId(2)], &table, &control), Err(GaveUp::Cancelled));
+        assert_eq!(hazards(&circuit, &[NetId(2)], &table, &control), Err(FlowError::Cancelled));
     }
 }
