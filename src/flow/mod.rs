@@ -15,6 +15,8 @@ mod coverage;
 mod follow;
 mod outcomes;
 mod table;
+#[cfg(test)]
+mod tests;
 mod timeline;
 mod tour;
 
