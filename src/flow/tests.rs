@@ -543,3 +543,64 @@ fn a_caller_may_stop_it() {
     control.cancel.store(true, std::sync::atomic::Ordering::Relaxed);
     assert_eq!(flow(&scenario, &[], &control).unwrap_err(), FlowError::Cancelled);
 }
+
+/// Random networks of four gates: all stable states by trying every vector, and what can be reached by following changes
+/// one by one.
+#[test]
+fn states_and_reach_of_random_networks() {
+    // a small generator with a fixed seed (xorshift)
+    let mut seed = 0x2545_f491_4f6c_dd1du64;
+    let mut below = |most: usize| {
+        seed ^= seed << 13;
+        seed ^= seed >> 7;
+        seed ^= seed << 17;
+        (seed >> 33) as usize % most
+    };
+    const NAMES: [&str; 6] = ["a", "b", "w", "x", "y", "z"];
+    let control = Control::default();
+    let (mut unreachable, mut races) = (0, 0);
+    for case in 0..300 {
+        let mut text = String::from("outputs = [\"z\"]\nbegin = \"random\"\n[inputs]\na = 0\nb = 0\n[gates]\n");
+        for gate in &NAMES[2..] {
+            let function = ["nand", "nor", "and", "or", "xor"][below(5)];
+            text += &format!("{gate} = {{ {function} = [\"{}\", \"{}\"] }}\n", NAMES[below(6)], NAMES[below(6)]);
+        }
+        let scenario = scenario(&text);
+        let circuit = &scenario.circuit;
+        let table = table(&scenario, Limits::default(), &control).unwrap();
+        assert!(!table.states_truncated, "{text}");
+        let all: Vec<Bits> = (0..64u32)
+            .map(|vector| Bits::of((0..6).map(|net| vector >> net & 1 == 1)))
+            .filter(|state| crate::statics::is_stable(circuit, &State::known(state.clone())))
+            .collect();
+        let mut listed: Vec<Bits> = table.states.iter().map(|state| state.values.clone()).collect();
+        listed.sort_unstable();
+        assert_eq!(listed, all, "case {case}:\n{text}");
+        // with both inputs at 0 the run may begin in any state
+        let mut reach: Vec<Bits> = all.iter().filter(|state| !state.get(0) && !state.get(1)).cloned().collect();
+        assert_eq!(table.start.len(), reach.len());
+        let mut next = 0;
+        while next < reach.len() {
+            for input in circuit.inputs() {
+                let change = Change::of_one(&reach[next], input);
+                let crate::statics::Outcome::Exact { states, race, .. } =
+                    follow(&scenario, &reach[next], &change, false, &control).unwrap()
+                else {
+                    panic!("small enough");
+                };
+                races += usize::from(race == Race::Critical);
+                for state in states {
+                    if !reach.contains(&state) {
+                        reach.push(state);
+                    }
+                }
+            }
+            next += 1;
+        }
+        for state in &table.states {
+            assert_eq!(state.reachable, reach.contains(&state.values), "case {case}:\n{text}");
+            unreachable += usize::from(!state.reachable);
+        }
+    }
+    assert!(unreachable > 0 && races > 0, "{unreachable} unreachable, {races} races: both kinds are met");
+}
