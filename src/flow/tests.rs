@@ -518,7 +518,7 @@ fn without_one_state_to_start_from_the_rest_is_told() {
 }
 
 #[test]
-fn a_hundred_thousand_gates_are_cut_by_their_values() {
+fn a_hundred_thousand_gates_and_a_long_loop_of_steps() {
     let n = 100_000;
     let mut chain = Builder::new("chain");
     chain.input("in", false);
@@ -529,11 +529,11 @@ fn a_hundred_thousand_gates_are_cut_by_their_values() {
     let steps = vec![NewStep::rest("0").set("in", true), NewStep::rest("0").set("in", false)];
     chain.repeat(10_000, steps);
     let scenario = chain.finish().unwrap();
-    let flow = flow(&scenario, &[], &Control::default()).unwrap();
+    let table = table(&scenario, Limits::default(), &Control::default()).unwrap();
     // two states and two changes: what recurs costs nothing, and the number of steps is the limit
-    assert_eq!((flow.table.states.len(), flow.table.single.len()), (2, 2));
-    assert!(flow.table.steps_truncated && !flow.table.states_truncated);
-    assert_eq!(flow.coverage.exercised, 2);
+    assert_eq!((table.states.len(), table.single.len(), table.steps.len()), (2, 2, 4096));
+    assert!(table.steps_truncated && !table.states_truncated);
+    assert_eq!(Coverage::of(&table).exercised, 2);
 }
 
 #[test]

@@ -45,8 +45,9 @@ pub struct Timeline<'a> {
     stimulus: &'a Stimulus,
     /// The next listed step.
     step: usize,
-    /// Placed instant of the listed step before, in fs; also the instant of the group before, if that is later.
+    /// Placed instant of the listed step before, in fs.
     last_step: u64,
+    /// Instant of the group before, in fs; once a step has waited, counted from anywhere.
     now: u64,
     cases: Vec<ClockCase>,
     /// The moment of the first edge of each clock.
