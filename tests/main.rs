@@ -10,6 +10,7 @@ mod engine_properties;
 mod golden;
 mod judges_agree;
 mod malformed;
+mod outcomes_agree;
 mod outside;
 mod support;
 mod sweeps_agree;
