@@ -4,6 +4,10 @@
 //!
 //! Everything is said of the circuit alone: a hazard is the ability to glitch, not a glitch that was seen.
 
+mod follow;
+
+pub use follow::{FlowError, follow, outside, winners_are_valid};
+
 use crate::circuit::NetId;
 use crate::logic::{Bits, Shape, State};
 use crate::statics::{Change, Race};

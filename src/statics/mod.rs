@@ -18,6 +18,7 @@ mod state_set;
 mod state_variables;
 pub mod ternary;
 mod walk;
+mod winners;
 
 pub use change::Change;
 pub use outcome::{Outcome, Race, bound, outcome};
