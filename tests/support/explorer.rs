@@ -19,8 +19,8 @@ pub enum Delays {
 enum Element {
     /// An input; it wants a value only while a change that takes its time is under way.
     Input,
-    /// A gate and the elements that it reads, pin by pin.
-    Gate(Function, Vec<usize>),
+    /// The elements that a gate reads, pin by pin, and its value for every row of pins, pin 0 as the lowest digit.
+    Gate(Vec<usize>, Vec<bool>),
     /// A wire from an element.
     Wire(usize),
 }
@@ -68,11 +68,18 @@ impl Explorer {
                 nets + wires.len() - 1
             };
             let pins = circuit.pins(gate).iter().map(|net| read(*net)).collect();
-            elements.push(Element::Gate(circuit.function(gate).clone(), pins));
+            elements.push(Element::Gate(pins, table(circuit.function(gate), circuit.pins(gate).len())));
         }
         elements.extend(wires);
         assert!(elements.len() <= 20, "too large to visit every state");
         Explorer { inputs, nets, loops: loops(circuit), elements }
+    }
+
+    /// Every stable state, over all nets, by trying.
+    pub fn stable_states(&self) -> Vec<Vec<bool>> {
+        assert_eq!(self.elements.len(), self.nets, "wires only repeat what their nets say");
+        let every = 0..1u32 << self.nets;
+        every.filter(|state| self.excited(*state, *state) == 0).map(|state| bits(state, self.nets)).collect()
     }
 
     /// Everything that may follow a change from a stable state.
@@ -101,15 +108,12 @@ impl Explorer {
     fn excited(&self, state: u32, wanted_inputs: u32) -> u32 {
         let value = |element: usize| state >> element & 1 == 1;
         let mut excited = 0;
-        let mut pins: Vec<bool> = Vec::new();
         for (number, element) in self.elements.iter().enumerate() {
             let wanted = match element {
                 Element::Input => wanted_inputs >> number & 1 == 1,
                 Element::Wire(net) => value(*net),
-                Element::Gate(function, reads) => {
-                    pins.clear();
-                    pins.extend(reads.iter().map(|element| value(*element)));
-                    function.value(&pins)
+                Element::Gate(reads, table) => {
+                    table[reads.iter().enumerate().map(|(pin, read)| usize::from(value(*read)) << pin).sum::<usize>()]
                 }
             };
             excited |= u32::from(wanted != value(number)) << number;
@@ -271,6 +275,11 @@ fn loops(circuit: &Circuit) -> Vec<u32> {
     loops.sort_unstable();
     loops.dedup();
     loops
+}
+
+/// The value of a function for every row of pins, pin 0 as the lowest digit.
+fn table(function: &Function, pins: usize) -> Vec<bool> {
+    (0..1 << pins).map(|row| function.value(&bits(row, pins))).collect()
 }
 
 fn set(state: &mut u32, element: usize, bit: bool) {

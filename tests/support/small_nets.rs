@@ -85,7 +85,7 @@ impl SmallNet {
         }
     }
 
-    /// Networks with one gate less: those that read it read another net instead.
+    /// Networks with one gate less, whose readers read another net instead, or with one gate of fewer pins.
     pub fn smaller(&self) -> Vec<SmallNet> {
         let mut smaller = Vec::new();
         for gone in self.inputs..self.nets() {
@@ -99,6 +99,22 @@ impl SmallNet {
                 for (_, pins) in &mut gates {
                     *pins = pins.iter().map(place).collect();
                 }
+                smaller.push(SmallNet { inputs: self.inputs, gates });
+            }
+        }
+        for (number, (_, pins)) in self.gates.iter().enumerate() {
+            let mut simpler: Vec<(Function, Vec<usize>)> = Vec::new();
+            for net in pins.iter().filter(|_| pins.len() > 1) {
+                simpler.extend([Function::Buf, Function::Not].map(|function| (function, vec![*net])));
+            }
+            for (at, a) in pins.iter().enumerate().filter(|_| pins.len() > 2) {
+                for b in &pins[at + 1..] {
+                    simpler.extend(OF_TWO.map(|function| (function, vec![*a, *b])));
+                }
+            }
+            for gate in simpler {
+                let mut gates = self.gates.clone();
+                gates[number] = gate;
                 smaller.push(SmallNet { inputs: self.inputs, gates });
             }
         }
