@@ -3,6 +3,7 @@
 #![allow(clippy::unwrap_used)] // a helper that fails is a test that fails
 
 mod commands;
+mod coverage;
 mod demonstrations;
 mod draws;
 mod engine_agrees;
@@ -15,3 +16,4 @@ mod outside;
 mod support;
 mod sweeps_agree;
 mod verdicts;
+mod views_agree;

@@ -1,22 +1,12 @@
 //! What may follow a change of a scenario's circuit, by the method that its parts allow.
 
+use super::FlowError;
 use crate::circuit::Circuit;
 use crate::control::Control;
 use crate::delay::Filter;
 use crate::logic::{Bits, State};
 use crate::scenario::Scenario;
 use crate::statics::{self, Change, GaveUp, Outcome};
-
-/// Why the delay-free view came to no end.
-#[derive(Clone, Debug, PartialEq, Eq, thiserror::Error)]
-pub enum FlowError {
-    /// Two methods contradict each other: a defect of the program.
-    #[error("{0}")]
-    Contradiction(String),
-    /// The caller asked to stop.
-    #[error("stopped on request")]
-    Cancelled,
-}
 
 /// Is the multiple-winner method valid for this scenario: is every gate inertial, and has no wire a delay? Else a pulse may
 /// arrive after its cause is over, and only ternary simulation bounds what follows (Mendler, Shiple, Berry, "Constructive
@@ -27,36 +17,52 @@ pub fn winners_are_valid(scenario: &Scenario) -> bool {
 }
 
 /// What may follow a change from a stable state of the scenario's circuit: exact where that is valid and within budget,
-/// else the ternary bound. `bounced`: the inputs move more than once, which only the bound covers.
+/// else the ternary bound. `restless`: inputs may move back and forth before they stay, which only the bound covers.
 ///
 /// Errors: the two methods contradict each other, or the caller asked to stop.
 pub fn follow(
     scenario: &Scenario,
     from: &Bits,
     change: &Change,
-    bounced: bool,
+    restless: bool,
     control: &Control,
 ) -> Result<Outcome, FlowError> {
     let circuit = &*scenario.circuit;
+    if restless {
+        return Ok(Outcome::Bound(statics::bound_restless(circuit, from, change).1));
+    }
     let bound = statics::bound(circuit, from, change).1;
-    if bounced || !winners_are_valid(scenario) {
+    if !winners_are_valid(scenario) {
         return Ok(Outcome::Bound(bound));
     }
     let outcome = statics::outcome(circuit, from, change, control).map_err(|_: GaveUp| FlowError::Cancelled)?;
-    if let Outcome::Exact { states, cycles, .. } = &outcome {
-        for state in states {
-            if let Some(net) = outside(circuit, state, &bound) {
-                return Err(FlowError::Contradiction(format!(
-                    "the multiple-winner method reaches a state in which `{net}` has another value than ternary simulation gives"
-                )));
-            }
+    match contradiction(circuit, &outcome, &bound) {
+        Some(what) => Err(FlowError::Contradiction(what)),
+        None => Ok(outcome),
+    }
+}
+
+/// What is wrong with an outcome beside its ternary bound: every state that the exact method reaches is stable and agrees
+/// with the bound, nothing oscillates where all is known, and something follows.
+pub(super) fn contradiction(circuit: &Circuit, outcome: &Outcome, bound: &State) -> Option<String> {
+    let Outcome::Exact { states, cycles, .. } = outcome else { return None };
+    for state in states {
+        if let Some(net) = outside(circuit, state, bound) {
+            return Some(format!(
+                "the multiple-winner method reaches a state in which `{net}` has another value than ternary simulation gives"
+            ));
         }
-        if *cycles > 0 && !bound.has_unknown() {
-            let what = "the multiple-winner method finds a lasting cycle where ternary simulation gives one state";
-            return Err(FlowError::Contradiction(what.to_string()));
+        if !statics::is_stable(circuit, &State::known(state.clone())) {
+            return Some("the multiple-winner method ends in a state that is not stable".into());
         }
     }
-    Ok(outcome)
+    if *cycles > 0 && !bound.has_unknown() {
+        return Some(
+            "the multiple-winner method finds a lasting cycle where ternary simulation gives one state".into(),
+        );
+    }
+    let nothing = states.is_empty() && *cycles == 0;
+    nothing.then(|| "the multiple-winner method finds neither rest nor a lasting cycle".into())
 }
 
 /// The first net of a state that has another value than the bound, where that is known.
