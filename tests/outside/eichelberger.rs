@@ -305,6 +305,6 @@ fn in_gates_the_essential_hazard_is_a_critical_race() {
         found.push(format!("x = {}, {}: {} {cycles}", &from[..1], row(&state), rows.join(" ")));
     }
     found.sort();
-    let expected = ["x = 0, 00: 01 10 1", "x = 0, 11: 01 10 1", "x = 1, 01: 00 11 1", "x = 1, 10: 00 0"];
+    let expected = ["x = 0, 00: 10 01 1", "x = 0, 11: 10 01 1", "x = 1, 01: 11 00 1", "x = 1, 10: 00 0"];
     assert_eq!(found, expected, "rows reached and lasting cycles");
 }

@@ -5,9 +5,11 @@
 mod eichelberger;
 mod engine;
 mod flow_tables;
+mod hazards;
 mod large_networks;
 mod networks;
 mod random_networks;
 mod small_networks;
 mod stable_states;
 mod statistics;
+mod words_of_nets;
