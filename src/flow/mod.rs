@@ -4,6 +4,12 @@
 //!
 //! Everything is said of the circuit alone: a hazard is the ability to glitch, not a glitch that was seen.
 
+mod compared;
+mod reference;
+
+pub use compared::compared;
+pub use reference::{Allowed, Answer, Coming, List, Passed, View};
+
 use crate::circuit::NetId;
 use crate::logic::{Bits, Shape, State};
 use crate::statics::{Change, Race};

@@ -1,12 +1,14 @@
 //! The views put together: runs, states and sweep of one scenario, the checks of the views against each other, and the
 //! verdict. Plain data; nothing is drawn here.
 
+mod departure;
 mod report;
 mod single;
 mod verdict;
 
 use std::collections::BTreeMap;
 
+pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
 pub use verdict::{grouped, verdict, with_typical};
