@@ -13,7 +13,7 @@ pub struct Departed<'a> {
     /// The state before its step, if it came at rest and without X.
     pub before: Option<&'a State>,
     /// How the inputs changed.
-    pub coming: Coming,
+    pub coming: &'a Coming,
     /// The state reached.
     pub reached: &'a State,
 }
@@ -43,8 +43,8 @@ pub struct Against {
 impl Departed<'_> {
     /// A copy that is kept.
     pub fn kept(&self) -> Departure {
-        let (moment, coming) = (self.moment, self.coming);
-        Departure { moment, before: self.before.cloned(), coming, reached: self.reached.clone() }
+        let (before, coming, reached) = (self.before.cloned(), self.coming.clone(), self.reached.clone());
+        Departure { moment: self.moment, before, coming, reached }
     }
 }
 
@@ -53,7 +53,7 @@ impl Departure {
     pub fn against(&self, allowed: &Allowed) -> Against {
         let before = self.before.as_ref().map(|state| allowed.view(&state.ones));
         let after = allowed.view(&self.reached.ones);
-        let passed = Passed { before: before.as_ref(), coming: self.coming, after: &after };
+        let passed = Passed { before: before.as_ref(), coming: &self.coming, after: &after };
         Against { departure: self.clone(), allowed: allowed.list(&passed) }
     }
 }

@@ -2,33 +2,48 @@
 
 use std::collections::BTreeSet;
 
+use rustc_hash::FxHashSet;
+
 use super::reference::{Allowed, Answer, Coming, Passed, View};
-use super::{Beyond, Choice, Compared, Contained, FlowTable, Reached, StateNumber, Transition, TransitionRef};
+use super::{
+    Beyond, Choice, Compared, Contained, FlowError, FlowTable, Reached, StateNumber, Timeline, Transition,
+    TransitionRef,
+};
 use crate::circuit::{Circuit, NetId};
 use crate::control::Control;
+use crate::scenario::Scenario;
 use crate::statics::{GaveUp, StateSet};
 
 /// Compares a circuit, with the flow table made of it, with the reference that `allowed` asks.
 ///
-/// Errors: only [`GaveUp::Cancelled`]; what a budget cuts is said in the result.
+/// Errors: only [`FlowError::Cancelled`]; what a budget cuts is said in the result.
 pub fn compared(
-    circuit: &Circuit,
+    scenario: &Scenario,
     allowed: &Allowed,
     table: &FlowTable,
     control: &Control,
-) -> Result<Compared, GaveUp> {
-    let states = match contained(circuit, allowed, control) {
+) -> Result<Compared, FlowError> {
+    let states = match contained(&scenario.circuit, allowed, control) {
+        Ok(states) => states,
         Err(GaveUp::Budget { .. }) => Contained::GaveUp,
-        done => done?,
+        Err(GaveUp::Cancelled) => return Err(FlowError::Cancelled),
     };
+    let bounced = Timeline::of(&scenario.stimulus).filter(|group| group.bounced).map(|group| group.moment);
+    let bounced: FxHashSet<u32> = bounced.collect();
     let mut found = Compared { states, beyond: Vec::new(), choices: Vec::new(), compared: 0, not_compared: 0 };
     let steps = table.steps.iter().enumerate().map(|(at, it)| (TransitionRef::Step(at as u32), it));
     let single = table.single.iter().enumerate().map(|(at, it)| (TransitionRef::Single(at as u32), it));
     for (name, transition) in steps.chain(single) {
         if control.cancelled() {
-            return Err(GaveUp::Cancelled);
+            return Err(FlowError::Cancelled);
         }
-        follow(allowed, table, name, transition, &mut found);
+        let change = &transition.change;
+        let coming = match (transition.moment.is_some_and(|moment| bounced.contains(&moment)), change.apart) {
+            (true, _) => Coming::Restless(change.set.iter().map(|(net, _)| *net).collect()),
+            (false, true) => Coming::Apart,
+            (false, false) => Coming::Together,
+        };
+        follow(allowed, table, name, transition, &coming, &mut found);
     }
     Ok(found)
 }
@@ -52,7 +67,14 @@ fn contained(circuit: &Circuit, allowed: &Allowed, control: &Control) -> Result<
 }
 
 /// Compares one transition.
-fn follow(allowed: &Allowed, table: &FlowTable, name: TransitionRef, transition: &Transition, found: &mut Compared) {
+fn follow(
+    allowed: &Allowed,
+    table: &FlowTable,
+    name: TransitionRef,
+    transition: &Transition,
+    coming: &Coming,
+    found: &mut Compared,
+) {
     let state = |number: StateNumber| &table.states[number as usize].values;
     let exact = matches!(transition.to, Reached::Exact { .. }) || transition.to.only().is_some();
     if !exact {
@@ -60,7 +82,6 @@ fn follow(allowed: &Allowed, table: &FlowTable, name: TransitionRef, transition:
         return;
     }
     let before = allowed.view(state(transition.from));
-    let coming = if transition.change.apart { Coming::Apart } else { Coming::Together };
     let (mut beyond, mut unknown) = (false, false);
     let mut views: BTreeSet<View> = BTreeSet::new();
     for reached in transition.to.states() {

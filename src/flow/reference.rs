@@ -19,7 +19,7 @@ use crate::circuit::{Circuit, NetId};
 use crate::control::Control;
 use crate::logic::{Bits, State, Value};
 use crate::scenario::Reference;
-use crate::statics::{Change, GaveUp, Outcome, bound, outcome, stable_states};
+use crate::statics::{Change, GaveUp, Outcome, bound_restless, outcome, stable_states};
 
 /// Stable states of the reference from which one change is followed, at most.
 const STATES: usize = 256;
@@ -33,14 +33,15 @@ const REMEMBERED: usize = 1 << 21;
 pub struct View(Bits);
 
 /// How the inputs of a step change.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Eq, Hash, Serialize, Deserialize)]
 pub enum Coming {
     /// All at one instant.
     Together,
     /// One after the other, in any order (skew).
     Apart,
-    /// Each any number of times before it stays (bounce).
-    Bouncing,
+    /// These, and whichever others change, any number of times before they stay (bounce, or steps of one instant with
+    /// skew that set an input twice).
+    Restless(Vec<NetId>),
 }
 
 /// A window that ended at rest, as the reference sees it.
@@ -49,7 +50,7 @@ pub struct Passed<'a> {
     /// Before the step, if it came at rest.
     pub before: Option<&'a View>,
     /// How the inputs changed.
-    pub coming: Coming,
+    pub coming: &'a Coming,
     /// Where the window ended.
     pub after: &'a View,
 }
@@ -203,7 +204,7 @@ impl Allowed {
 
     /// Is there one stable state of the reference that shows this view, from which the change offers all of these?
     /// `None`: gave up.
-    pub fn offers(&self, before: &View, coming: Coming, all: &[View]) -> Option<bool> {
+    pub fn offers(&self, before: &View, coming: &Coming, all: &[View]) -> Option<bool> {
         let Some(first) = all.first() else { return Some(true) };
         let Ok((starts, mut open)) = self.starts(before) else { return None };
         for start in &starts {
@@ -222,10 +223,10 @@ impl Allowed {
     }
 
     /// What may follow a view when the inputs change to those of `after`.
-    fn offer(&self, before: &View, coming: Coming, after: &View) -> Arc<Offer> {
+    fn offer(&self, before: &View, coming: &Coming, after: &View) -> Arc<Offer> {
         let mut inputs = Bits::zeros(self.inputs());
         (0..self.inputs()).for_each(|input| inputs.set(input, after.0.get(input)));
-        let key = Key::Follows(before.clone(), coming, inputs);
+        let key = Key::Follows(before.clone(), coming.clone(), inputs);
         if let Some(Known::Offer(offer)) = self.recall(&key) {
             return offer;
         }
@@ -243,14 +244,15 @@ impl Allowed {
     }
 
     /// Adds what may follow one stable state of the reference.
-    fn follow(&self, start: &Bits, coming: Coming, after: &View, offer: &mut Offer) {
+    fn follow(&self, start: &Bits, coming: &Coming, after: &View, offer: &mut Offer) {
         let circuit = &self.reference.circuit;
+        let restless = |net: &NetId| matches!(coming, Coming::Restless(inputs) if inputs.contains(net));
         let inputs = circuit.inputs().map(|net| (net, after.0.get(net.index())));
-        let set = inputs.filter(|(net, bit)| start.get(net.index()) != *bit).collect();
-        let change = Change { set, apart: coming == Coming::Apart };
+        let set = inputs.filter(|(net, bit)| start.get(net.index()) != *bit || restless(net)).collect();
+        let change = Change { set, apart: *coming == Coming::Apart };
         let found = match coming {
             _ if change.set.is_empty() => Ok(Outcome::Bound(State::known(start.clone()))),
-            Coming::Bouncing => Ok(Outcome::Bound(bound(circuit, start, &change).1)),
+            Coming::Restless(_) => Ok(Outcome::Bound(bound_restless(circuit, start, &change).1)),
             _ => outcome(circuit, start, &change, &self.control),
         };
         match found {

@@ -1,6 +1,7 @@
 //! The views put together: runs, states and sweep of one scenario, the checks of the views against each other, and the
 //! verdict. Plain data; nothing is drawn here.
 
+mod contained;
 mod departure;
 mod report;
 mod single;
@@ -17,6 +18,7 @@ use crate::circuit::NetId;
 use crate::control::Control;
 use crate::engine::Program;
 use crate::findings::{Asked, Kind, RuleKey};
+use crate::flow::FlowError;
 use crate::instance::Which;
 use crate::scenario::Scenario;
 use crate::statics;
@@ -36,8 +38,17 @@ pub enum ReviewError {
     Cancelled,
 }
 
+impl From<FlowError> for ReviewError {
+    fn from(error: FlowError) -> ReviewError {
+        match error {
+            FlowError::Contradiction(what) => ReviewError::Contradiction(what),
+            FlowError::Cancelled => ReviewError::Cancelled,
+        }
+    }
+}
+
 /// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
-/// settled state is a stable state. A cancelled sweep concludes from what was complete.
+/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows. A cancelled sweep concludes from what was complete.
 pub fn sweep(
     scenario: &Scenario,
     program: &Program,
@@ -59,6 +70,7 @@ pub fn sweep(
             }
         }
     }
+    contained::sweep(scenario, &tally, &Control::default())?;
     Ok(report)
 }
 
@@ -72,11 +84,14 @@ pub fn review(
     control: &Control,
 ) -> Result<Review, ReviewError> {
     let asked = Asked::of(scenario);
-    let states = states(&scenario.circuit, control);
+    let states = states(scenario, control)?;
     let typical = match scenario.cannot_run {
         true => None,
         false => Some(run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?),
     };
+    if let Some(typical) = &typical {
+        contained::run(scenario, "the typical run", &typical.trace, control)?;
+    }
     let sweep = sweep(scenario, program, &asked, threads, control)?;
     let mut shown = Vec::new();
     for index in to_show(&asked, &sweep) {

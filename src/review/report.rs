@@ -3,6 +3,7 @@
 use crate::circuit::NetId;
 use crate::engine::Trace;
 use crate::findings::{Against, Asked, Fact, Kind, Reason};
+use crate::flow::Flow;
 use crate::instance::{Instance, Which};
 use crate::logic::Bits;
 use crate::sweep::SweepReport;
@@ -57,6 +58,8 @@ pub struct StatesReport {
     pub inputs_truncated: bool,
     /// Input vectors with no, one, several stable states, in decimal; `None` if the budget ran out.
     pub vectors: Option<[String; 3]>,
+    /// What may follow what: flow table, coverage, automaton, hazards, reference.
+    pub flow: Flow,
 }
 
 /// The verdict of a review or sweep.

@@ -3,7 +3,7 @@
 use super::change::Change;
 use super::winners::{Effort, winners};
 use super::{GaveUp, ternary};
-use crate::circuit::Circuit;
+use crate::circuit::{Circuit, NetId};
 use crate::control::Control;
 use crate::logic::{Bits, State, Value};
 
@@ -57,14 +57,29 @@ impl Outcome {
 
 /// Ternary simulation (Eichelberger 1965) of a change from a stable state: all that may move goes to X, then recedes
 /// with the new inputs. Takes time linear in the circuit; holds for gates and wires of any delay and any filter, and
-/// for inputs that change in any order and any number of times before they stay.
+/// for inputs that change in any order.
 ///
 /// First the state with all that may move at X, then the result.
 ///
 /// Panics if the state has fewer nets than the circuit.
 pub fn bound(circuit: &Circuit, from: &Bits, change: &Change) -> (State, State) {
+    ternary_of(circuit, from, change.moving(from), change)
+}
+
+/// As [`bound`], for inputs that may move back and forth before they stay, also those that end where they were: contact
+/// bounce, or steps of one instant with skew that set an input twice.
+pub fn bound_restless(circuit: &Circuit, from: &Bits, change: &Change) -> (State, State) {
+    ternary_of(circuit, from, change.set.iter().copied(), change)
+}
+
+fn ternary_of(
+    circuit: &Circuit,
+    from: &Bits,
+    moving: impl Iterator<Item = (NetId, bool)>,
+    change: &Change,
+) -> (State, State) {
     let mut spread = State::known(from.clone());
-    for (net, _) in change.moving(from) {
+    for (net, _) in moving {
         spread.set(net.index(), Value::X);
     }
     ternary::spread(circuit, &mut spread);
@@ -120,7 +135,7 @@ fn outcome_within(
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::circuit::{Function, GateSpec, NetId};
+    use crate::circuit::{Function, GateSpec};
 
     fn circuit(inputs: &[&str], gates: &[(&str, Function, &[u32])]) -> Circuit {
         let gates = gates

@@ -2,6 +2,7 @@
 
 use stillgate::circuit::NetId;
 use stillgate::findings::{Asked, Kind, Reason, RuleKey, Shape, Subject};
+use stillgate::flow::Flow;
 use stillgate::instance::Which;
 use stillgate::logic::{Bits, State, Value};
 use stillgate::review::{Call, Review, StatesReport, Verdict};
@@ -172,6 +173,7 @@ pub fn states(scenario: &Scenario) -> StatesReport {
         ],
         inputs_truncated: false,
         vectors: Some(["0".into(), "3".into(), "1".into()]),
+        flow: Flow::default(),
     }
 }
 

@@ -8,6 +8,7 @@ use rustc_hash::FxHasher;
 use super::nets::{ByMoment, NONE};
 use super::sink::Sink;
 use super::span::reason_of;
+use crate::circuit::NetId;
 use crate::engine::{Closing, End};
 use crate::findings::{Asked, Departed, Fact, Kind, Reason, RuleKey, Subject};
 use crate::flow::{Allowed, Answer, Coming, Passed, View};
@@ -22,14 +23,28 @@ const SLOTS: usize = 256;
 pub(super) struct AgainstReference {
     allowed: Arc<Allowed>,
     questions: ByMoment,
-    /// How the inputs of each moment change.
-    coming: Vec<Coming>,
+    /// How the inputs of each moment change, and for listed steps which.
+    ways: Vec<Way>,
+    sets: Vec<Vec<NetId>>,
     power_up: Option<u32>,
     /// How those of the window that is open changed.
     now: Coming,
     before: View,
     after: View,
     slots: Vec<Option<Slot>>,
+}
+
+/// How a moment changes its inputs.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Way {
+    /// An edge of a clock, or power-up.
+    NoStep,
+    /// A step, all at one instant.
+    Plain,
+    /// A step with skew.
+    Skewed,
+    /// A step with bounce.
+    Bounced,
 }
 
 /// An answer that is remembered.
@@ -46,15 +61,22 @@ impl AgainstReference {
     pub(super) fn of(scenario: &Scenario, asked: &Asked) -> Option<AgainstReference> {
         let allowed = asked.allowed.clone()?;
         let stimulus = &scenario.stimulus;
-        let coming = stimulus.moments.iter().map(|moment| match stimulus.step_of(moment) {
-            Some(step) if step.bounce.is_some() => Coming::Bouncing,
-            Some(step) if step.skew.is_some_and(|skew| skew.max.fs() > 0) => Coming::Apart,
-            _ => Coming::Together,
+        let ways = stimulus.moments.iter().map(|moment| match stimulus.step_of(moment) {
+            Some(step) if step.bounce.as_ref().is_some_and(|bounce| bounce.pulses.1 > 0) => Way::Bounced,
+            // offsets that are all the same keep the changes together
+            Some(step) if step.skew.is_some_and(|skew| !skew.is_exact()) => Way::Skewed,
+            Some(_) => Way::Plain,
+            None => Way::NoStep,
+        });
+        let sets = stimulus.moments.iter().map(|moment| match stimulus.step_of(moment) {
+            Some(_) => stimulus.inputs_of(moment),
+            None => Vec::new(),
         });
         let question = |moment| asked.find(RuleKey::Reference, 0, None, Some(moment)).unwrap_or(NONE);
         Some(AgainstReference {
             questions: (0..stimulus.moments.len() as u32).map(question).collect(),
-            coming: coming.collect(),
+            ways: ways.collect(),
+            sets: sets.collect(),
             power_up: stimulus.moments.first().filter(|it| it.kind == MomentKind::PowerUp).map(|_| 0),
             now: Coming::Together,
             before: allowed.blank(),
@@ -64,10 +86,20 @@ impl AgainstReference {
         })
     }
 
-    /// A window begins with these moments: of steps of one instant the one that leaves most open counts.
+    /// A window begins with these moments.
     pub(super) fn open(&mut self, moments: &[u32]) {
-        let each = moments.iter().map(|moment| self.coming[*moment as usize]);
-        self.now = each.max().unwrap_or(Coming::Together);
+        let ways = moments.iter().map(|moment| self.ways[*moment as usize]);
+        let (bounced, skewed) = (ways.clone().any(|it| it == Way::Bounced), ways.clone().any(|it| it == Way::Skewed));
+        let steps = ways.filter(|it| *it != Way::NoStep).count();
+        // of several steps with skew any may come last, so an input that two of them set may move to and fro
+        self.now = match (bounced || (skewed && steps > 1), skewed) {
+            (true, _) => {
+                let all = moments.iter().flat_map(|moment| &self.sets[*moment as usize]);
+                Coming::Restless(all.copied().collect())
+            }
+            (false, true) => Coming::Apart,
+            (false, false) => Coming::Together,
+        };
     }
 
     /// A whole window ends. `before`: the state before it, if it began at rest and without X.
@@ -88,8 +120,8 @@ impl AgainstReference {
         match answer {
             Answer::NotAllowed => {
                 sink.judged(question, true, None);
-                let (moment, coming) = (closing.moment, self.now);
-                sink.departed(&Departed { moment, before, coming, reached: closing.state });
+                let moment = closing.moment;
+                sink.departed(&Departed { moment, before, coming: &self.now, reached: closing.state });
                 let kind = Kind::NotInReference;
                 let subject = Subject { kind, shape: None, question: Some(question), net: None, moment: Some(moment) };
                 sink.fact(Fact { subject, breaks_rule: true, measure: None, place: None });
@@ -108,13 +140,14 @@ impl AgainstReference {
         self.allowed.look(&after.ones, &mut self.after);
         let seen = before.map(|_| &self.before);
         let mut hasher = FxHasher::default();
-        (seen, self.now, &self.after).hash(&mut hasher);
+        (seen, &self.now, &self.after).hash(&mut hasher);
         let slot = &mut self.slots[(hasher.finish() >> 32) as usize % SLOTS];
         match slot {
             Some(it) if it.coming == self.now && it.after == self.after && it.before.as_ref() == seen => it.answer,
             _ => {
-                let answer = self.allowed.answer(&Passed { before: seen, coming: self.now, after: &self.after });
-                *slot = Some(Slot { before: seen.cloned(), coming: self.now, after: self.after.clone(), answer });
+                let answer = self.allowed.answer(&Passed { before: seen, coming: &self.now, after: &self.after });
+                *slot =
+                    Some(Slot { before: seen.cloned(), coming: self.now.clone(), after: self.after.clone(), answer });
                 answer
             }
         }
