@@ -104,7 +104,8 @@ fn follow(
             Some(true) => {}
             None => unknown = true,
             Some(false) => {
-                let outcomes = all.iter().map(|view| allowed.compared(view)).collect();
+                let mut outcomes: Vec<Vec<bool>> = all.iter().map(|view| allowed.compared(view)).collect();
+                outcomes.sort_unstable();
                 found.choices.push(Choice { transition: name, outcomes });
             }
         }
@@ -112,5 +113,163 @@ fn follow(
     match unknown {
         true => found.not_compared += 1,
         false => found.compared += 1,
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::flow::{Flow, FlowState, flow};
+    use crate::logic::Bits;
+    use crate::reader;
+    use crate::statics::{Change, Race};
+
+    fn scenario(text: &str) -> Scenario {
+        reader::read(text, "compared.toml").unwrap_or_else(|it| panic!("{}", it.render(false))).scenario
+    }
+
+    fn compare(text: &str) -> (Scenario, Flow, Compared) {
+        let scenario = scenario(text);
+        let flow = flow(&scenario, scenario.circuit.feedback(), &Control::default()).unwrap();
+        let compared = flow.compared.clone().expect("there is a reference");
+        (scenario, flow, compared)
+    }
+
+    /// Values of all nets of a state, and the change, of a transition of the table.
+    fn told(flow: &Flow, transition: TransitionRef) -> (String, Vec<(u32, bool)>) {
+        let it = match transition {
+            TransitionRef::Step(at) => &flow.table.steps[at as usize],
+            TransitionRef::Single(at) => &flow.table.single[at as usize],
+        };
+        let set = it.change.set.iter().map(|(net, bit)| (net.0, *bit)).collect();
+        (letters(&flow.table.states[it.from as usize].values, 6), set)
+    }
+
+    fn letters(bits: &Bits, nets: usize) -> String {
+        (0..nets).map(|net| if bits.get(net) { '1' } else { '0' }).collect()
+    }
+
+    /// A latch of two products without the term for the change between them, against an ideal one.
+    const LATCH: &str = r#"
+        outputs = ["kept"]
+        [inputs]
+        permit = 0
+        key = 0
+        [initial]
+        kept = 0
+        [gates]
+        let_go = { not = ["key"] }
+        taken = { and = ["key", "permit"] }
+        held = { and = ["let_go", "kept"] }
+        kept = { or = ["taken", "held"] }
+        [[steps]]
+        set = { permit = 1 }
+        [[steps]]
+        set = { key = 1 }
+        [[steps]]
+        set = { key = 0 }
+        [reference]
+        [reference.gates]
+        kept = { expr = "key & permit | !key & kept" }
+    "#;
+
+    #[test]
+    fn a_latch_without_its_consensus_term_goes_beyond_the_ideal_one() {
+        let (_, flow, compared) = compare(LATCH);
+        assert_eq!(compared.states, Contained::Proved, "it rests nowhere else");
+        // only letting the key go, with the permit there, may lose it: nets are permit key let_go taken held kept
+        let beyond: Vec<_> = compared.beyond.iter().map(|it| (told(&flow, it.transition), &it.allowed)).collect();
+        let lost = (("110101".to_string(), vec![(1, false)]), &vec![vec![true]]);
+        assert_eq!(beyond, [lost.clone(), lost], "as a step and as a single change");
+        let reached = letters(&flow.table.states[compared.beyond[0].reached as usize].values, 6);
+        assert_eq!(reached, "101000");
+        assert_eq!(compared.choices, []);
+        assert_eq!(compared.not_compared, 0);
+        assert_eq!(compared.compared as usize, flow.table.steps.len() + flow.table.single.len());
+    }
+
+    #[test]
+    fn the_cured_latch_stays_within() {
+        let cured = LATCH.replace(r#"{ or = ["taken", "held"] }"#, r#"{ expr = "taken | held | permit & kept" }"#);
+        let (_, _, compared) = compare(&cured);
+        assert_eq!((compared.states, compared.beyond.len(), compared.not_compared), (Contained::Proved, 0, 0));
+    }
+
+    #[test]
+    fn stable_states_that_the_reference_has_not_are_told_by_the_first() {
+        let other = LATCH.replace("key & permit | !key & kept", "key & permit | !key & kept & permit");
+        let (scenario, _, compared) = compare(&other);
+        let net = |name: &str| scenario.circuit.net(name).unwrap();
+        let first = vec![(net("permit"), false), (net("key"), false), (net("kept"), true)];
+        assert_eq!(compared.states, Contained::Not(first));
+    }
+
+    #[test]
+    fn a_choice_that_no_single_state_of_the_reference_offers() {
+        // two gates race for p when a rises; the reference can do either, but which is settled beforehand
+        let text = r#"
+            outputs = ["p"]
+            [inputs]
+            a = 0
+            [gates]
+            na = { not = ["a"] }
+            p = { nor = ["na", "q"] }
+            q = { nor = ["na", "p"] }
+            [[steps]]
+            set = { a = 1 }
+            [reference]
+            [reference.gates]
+            mode = { buf = ["mode"] }
+            p = { and = ["a", "mode"] }
+        "#;
+        let (_, flow, compared) = compare(text);
+        assert_eq!((compared.states, compared.beyond.len()), (Contained::Proved, 0));
+        assert_eq!(compared.choices.len(), 2, "the step, and the same single change: {:?}", compared.choices);
+        assert_eq!(compared.choices[0].transition, TransitionRef::Step(0));
+        for choice in &compared.choices {
+            assert_eq!(choice.outcomes, [[false], [true]]);
+            assert_eq!(told(&flow, choice.transition).1, [(0, true)]);
+        }
+        // an arbiter as the reference has the same choice in one state
+        let arbiter = text.replace(r#"mode = { buf = ["mode"] }"#, r#"mode = { expr = "a & !p" }"#);
+        let arbiter = arbiter.replace(r#"p = { and = ["a", "mode"] }"#, r#"p = { expr = "a & !mode" }"#);
+        assert_eq!(compare(&arbiter).2.choices, []);
+    }
+
+    #[test]
+    fn what_is_only_bounded_is_not_compared() {
+        let scenario = scenario(LATCH);
+        let allowed = Allowed::of(scenario.reference.clone().unwrap(), &Control::default());
+        let state = |letters: &str| FlowState {
+            values: Bits::of(letters.chars().map(|it| it == '1').collect::<Vec<_>>().into_iter()),
+            reachable: true,
+            explored: true,
+        };
+        let mut unknown = crate::logic::State::known(state("101000").values);
+        unknown.set(5, crate::logic::Value::X);
+        let transition = |to| Transition {
+            moment: None,
+            from: 0,
+            change: Change { set: vec![(NetId(1), false)], apart: false },
+            to,
+            essential: None,
+            sure: true,
+        };
+        let table = FlowTable {
+            states: vec![state("110101"), state("101000"), state("101011")],
+            single: vec![
+                transition(Reached::Bound { state: unknown, states: vec![1, 2], truncated: false }),
+                transition(Reached::Exact { states: vec![2], cycles: 0, race: Race::None }),
+            ],
+            ..FlowTable::default()
+        };
+        let found = compared(&scenario, &allowed, &table, &Control::default()).unwrap();
+        assert_eq!((found.compared, found.not_compared, found.beyond.len()), (1, 1, 0));
+        // a decision diagram of two nodes is not enough for the stable states
+        let poor = Control { nodes: 2, ..Control::default() };
+        assert_eq!(compared(&scenario, &allowed, &table, &poor).unwrap().states, Contained::GaveUp);
+        let control = Control::default();
+        control.cancel.store(true, std::sync::atomic::Ordering::Relaxed);
+        assert_eq!(compared(&scenario, &allowed, &table, &control), Err(FlowError::Cancelled));
     }
 }

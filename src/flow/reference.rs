@@ -199,7 +199,9 @@ impl Allowed {
             Some(offer) => offer,
             None => Arc::new(self.at_rest(passed.after)),
         };
-        List { values: offer.views.iter().map(|view| self.compared(view)).collect(), open: offer.open }
+        let mut values: Vec<Vec<bool>> = offer.views.iter().map(|view| self.compared(view)).collect();
+        values.sort_unstable();
+        List { values, open: offer.open }
     }
 
     /// Is there one stable state of the reference that shows this view, from which the change offers all of these?
@@ -344,5 +346,180 @@ impl Allowed {
 
     fn keep(&self, key: Key, known: Known) {
         self.memo.lock().unwrap_or_else(PoisonError::into_inner).keep(key, known);
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::reader;
+
+    /// The oracle of a reference written as in a file, beside a circuit that is the same network.
+    fn oracle(inputs: &str, compare: &str, gates: &str, nodes: usize) -> Allowed {
+        let inputs: String = inputs.split_whitespace().map(|net| format!("{net} = 0\n")).collect();
+        let text = format!(
+            "begin = \"random\"\n[inputs]\n{inputs}[gates]\n{gates}\n[reference]\ncompare = [{compare}]\n\
+             [reference.gates]\n{gates}\n"
+        );
+        let scenario =
+            reader::read(&text, "reference.toml").unwrap_or_else(|it| panic!("{}", it.render(false))).scenario;
+        Allowed::of(scenario.reference.unwrap(), &Control { nodes, ..Control::default() })
+    }
+
+    fn view(letters: &str) -> View {
+        View(Bits::of(letters.chars().map(|letter| letter == '1').collect::<Vec<_>>().into_iter()))
+    }
+
+    fn ask(allowed: &Allowed, before: &str, coming: &Coming, after: &str) -> Answer {
+        let (from, to) = (view(before), view(after));
+        let before = (!before.is_empty()).then_some(&from);
+        allowed.answer(&Passed { before, coming, after: &to })
+    }
+
+    fn list(allowed: &Allowed, before: &str, coming: &Coming, after: &str) -> (Vec<String>, bool) {
+        let (from, to) = (view(before), view(after));
+        let before = (!before.is_empty()).then_some(&from);
+        let List { values, open } = allowed.list(&Passed { before, coming, after: &to });
+        let text = |values: &Vec<bool>| values.iter().map(|bit| if *bit { '1' } else { '0' }).collect();
+        (values.iter().map(text).collect(), open)
+    }
+
+    use Answer::{GaveUp as Open, NotAllowed as No};
+    use Coming::{Apart, Together};
+    const YES: Answer = Answer::Allowed;
+
+    /// Views are `permit key kept`.
+    fn memory() -> Allowed {
+        oracle("permit key", "\"kept\"", r#"kept = { expr = "key & permit | !key & kept" }"#, 0)
+    }
+
+    #[test]
+    fn a_memory_keeps_its_bit() {
+        let memory = memory();
+        // the key is let go: either bit is stable, and only the one that was there may follow
+        assert_eq!(ask(&memory, "111", &Together, "101"), YES);
+        assert_eq!(ask(&memory, "111", &Together, "100"), No);
+        assert_eq!(list(&memory, "111", &Together, "100"), (vec!["1".into()], false));
+        // not known from where: both
+        assert_eq!(ask(&memory, "", &Together, "100"), YES);
+        assert_eq!(list(&memory, "", &Together, "100"), (vec!["0".into(), "1".into()], false));
+        // with the key pressed there is one
+        assert_eq!(ask(&memory, "", &Together, "110"), No);
+        assert_eq!(list(&memory, "", &Together, "110"), (vec!["1".into()], false));
+    }
+
+    #[test]
+    fn from_where_the_reference_cannot_be_nothing_may_follow() {
+        let memory = memory();
+        assert_eq!(ask(&memory, "110", &Together, "100"), No, "no stable state shows 110");
+        assert_eq!(ask(&memory, "110", &Together, "101"), No);
+        assert_eq!(list(&memory, "110", &Together, "101"), (vec![], false));
+    }
+
+    #[test]
+    fn where_no_input_changes_the_state_stays() {
+        let memory = memory();
+        assert_eq!((ask(&memory, "100", &Together, "100"), ask(&memory, "100", &Together, "101")), (YES, No));
+        assert_eq!((ask(&memory, "100", &Apart, "100"), ask(&memory, "100", &Apart, "101")), (YES, No));
+    }
+
+    #[test]
+    fn inputs_that_change_apart_leave_more_open() {
+        // it remembers that a was seen without b; views are `a b seen`
+        let seen = oracle("a b", "\"seen\"", r#"seen = { expr = "a & !b | seen" }"#, 0);
+        assert_eq!((ask(&seen, "000", &Together, "110"), ask(&seen, "000", &Together, "111")), (YES, No));
+        assert_eq!((ask(&seen, "000", &Apart, "110"), ask(&seen, "000", &Apart, "111")), (YES, YES));
+        assert_eq!(list(&seen, "000", &Apart, "110"), (vec!["0".into(), "1".into()], false));
+        // a moved to and fro and is where it was; the bound says nothing of `seen`
+        let restless = Coming::Restless(vec![NetId(0)]);
+        assert_eq!((ask(&seen, "000", &restless, "000"), ask(&seen, "000", &restless, "001")), (Open, Open));
+        assert_eq!(ask(&seen, "000", &Together, "001"), No);
+        // but b alone cannot make it
+        let restless = Coming::Restless(vec![NetId(1)]);
+        assert_eq!((ask(&seen, "000", &restless, "000"), ask(&seen, "000", &restless, "001")), (YES, No));
+    }
+
+    #[test]
+    fn first_come_first_served() {
+        let gates = r#"
+            upper = { expr = "call_upper & !lower" }
+            lower = { expr = "call_lower & !upper" }"#;
+        let both = oracle("call_upper call_lower", "\"upper\", \"lower\"", gates, 0);
+        assert_eq!(list(&both, "0000", &Together, "1100"), (vec!["01".into(), "10".into()], false));
+        assert_eq!(ask(&both, "1010", &Together, "1101"), No, "the one that has it keeps it");
+        assert_eq!(ask(&both, "1010", &Together, "1110"), YES);
+        // they change over only through neither
+        assert_eq!(list(&both, "1010", &Together, "0101"), (vec!["01".into()], false));
+    }
+
+    /// A ring of 14 gates that all leave 0 together is more than the exact method follows.
+    fn ring() -> Allowed {
+        let gates: String =
+            (0..14).map(|at| format!("g{at} = {{ nor = [\"stop\", \"g{}\"] }}\n", (at + 1) % 14)).collect();
+        oracle("stop", "\"g0\", \"g1\"", &gates, 0)
+    }
+
+    #[test]
+    fn where_only_a_bound_is_known_nothing_is_claimed() {
+        let ring = ring();
+        assert_eq!(ask(&ring, "100", &Together, "001"), Open);
+        assert_eq!(ask(&ring, "100", &Together, "010"), Open);
+        // but no stable state has both
+        assert_eq!(ask(&ring, "100", &Together, "011"), No);
+        assert_eq!(list(&ring, "100", &Together, "011"), (vec!["01".into(), "10".into()], false));
+        // back to one state, which the bound knows
+        assert_eq!((ask(&ring, "010", &Together, "100"), ask(&ring, "010", &Together, "110")), (YES, No));
+        assert_eq!(ring.offers(&view("100"), &Together, &[view("001"), view("010")]), None);
+    }
+
+    #[test]
+    fn a_budget_that_runs_out_is_no_answer() {
+        let gates: String =
+            (0..14).map(|at| format!("g{at} = {{ nor = [\"stop\", \"g{}\"] }}\n", (at + 1) % 14)).collect();
+        let all: Vec<String> = (0..1).map(|at| format!("\"g{at}\"")).collect();
+        let poor = oracle(
+            "stop other",
+            &all.join(", "),
+            &(gates + "h = { xor = [\"h\", \"other\"] }\nk = { buf = [\"k\"] }"),
+            2,
+        );
+        assert_eq!(ask(&poor, "", &Together, "001"), Open);
+        assert_eq!(list(&poor, "", &Together, "001"), (vec![], true));
+    }
+
+    #[test]
+    fn one_state_offers_what_several_together_do_not() {
+        // `mode` is a bit that never changes and that nobody sees; views are `a out`
+        let hidden = oracle("a", "\"out\"", "mode = { buf = [\"mode\"] }\nout = { and = [\"a\", \"mode\"] }", 0);
+        assert_eq!(list(&hidden, "00", &Together, "10"), (vec!["0".into(), "1".into()], false));
+        assert_eq!(hidden.offers(&view("00"), &Together, &[view("10"), view("11")]), Some(false));
+        assert_eq!(hidden.offers(&view("00"), &Together, &[view("11")]), Some(true));
+        assert_eq!(hidden.offers(&view("11"), &Together, &[view("00")]), Some(true));
+    }
+
+    #[test]
+    fn answers_do_not_depend_on_what_was_asked_before_nor_on_who_asks() {
+        let gates = r#"
+            upper = { expr = "call_upper & !lower" }
+            lower = { expr = "call_lower & !upper" }"#;
+        let letters = |number: u32| (0..4).map(|at| if number >> at & 1 == 1 { '1' } else { '0' }).collect::<String>();
+        let fresh = |before: u32, after: u32| {
+            let one = oracle("call_upper call_lower", "\"upper\", \"lower\"", gates, 0);
+            ask(&one, &letters(before), &Apart, &letters(after))
+        };
+        let truth: Vec<Answer> = (0..256).map(|it| fresh(it / 16, it % 16)).collect();
+        assert!(truth.contains(&YES) && truth.contains(&No));
+        let shared = oracle("call_upper call_lower", "\"upper\", \"lower\"", gates, 0);
+        std::thread::scope(|scope| {
+            for turn in 0..3u32 {
+                let (shared, truth) = (&shared, &truth);
+                scope.spawn(move || {
+                    for it in (0..256).map(|it| (it * 37 + turn * 101) % 256) {
+                        let answer = ask(shared, &letters(it / 16), &Apart, &letters(it % 16));
+                        assert_eq!(answer, truth[it as usize], "{it}");
+                    }
+                });
+            }
+        });
     }
 }

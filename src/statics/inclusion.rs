@@ -137,3 +137,104 @@ fn copies(projection: &Projection, level: &[u32], into: &mut Diagram) -> Result<
     }
     Ok(roots)
 }
+
+#[cfg(test)]
+mod tests {
+    use std::collections::BTreeSet;
+
+    use rand::{RngExt, SeedableRng};
+    use rand_chacha::ChaCha8Rng;
+
+    use super::*;
+    use crate::circuit::{Circuit, Function, GateSpec, NetId};
+    use crate::statics::{StateSet, is_stable};
+
+    /// A random network of a few inputs and gates that may read anything.
+    fn random(rng: &mut ChaCha8Rng, inputs: usize) -> Circuit {
+        let gates = rng.random_range(1..=5usize);
+        let any = |rng: &mut ChaCha8Rng| NetId(rng.random_range(0..(inputs + gates) as u32));
+        let specs = (0..gates).map(|gate| {
+            let functions = [Function::And, Function::Or, Function::Nand, Function::Nor, Function::Xor, Function::Not];
+            let function = functions[rng.random_range(0..functions.len())].clone();
+            let pins = (0..if function == Function::Not { 1 } else { 2 }).map(|_| any(rng)).collect();
+            GateSpec { name: format!("g{gate}"), function, pins }
+        });
+        let specs = specs.collect();
+        let names: Vec<String> = (0..inputs).map(|input| format!("i{input}")).collect();
+        let names: Vec<&str> = names.iter().map(String::as_str).collect();
+        Circuit::new(&names, specs, vec![]).unwrap()
+    }
+
+    /// Some nets, each once, in any order.
+    fn some(rng: &mut ChaCha8Rng, circuit: &Circuit, most: usize) -> Vec<NetId> {
+        let mut nets: Vec<NetId> = circuit.nets().collect();
+        for at in (1..nets.len()).rev() {
+            nets.swap(at, rng.random_range(0..=at));
+        }
+        nets.truncate(most);
+        nets
+    }
+
+    /// Every stable state as these nets show it, by trying all states.
+    fn shown(circuit: &Circuit, nets: &[NetId]) -> BTreeSet<Vec<bool>> {
+        let all = 0..1u32 << circuit.net_count();
+        let states = all.map(|number| {
+            let bits = circuit.nets().map(|net| number >> net.index() & 1 == 1).collect::<Vec<_>>();
+            crate::logic::State::known(crate::logic::Bits::of(bits.into_iter()))
+        });
+        let stable = states.filter(|state| is_stable(circuit, state));
+        stable.map(|state| nets.iter().map(|net| state.ones.get(net.index())).collect()).collect()
+    }
+
+    #[test]
+    fn the_first_value_that_only_one_of_two_networks_shows() {
+        let control = Control::default();
+        let mut rng = ChaCha8Rng::seed_from_u64(11);
+        let (mut within, mut beyond, mut empty) = (0, 0, 0);
+        for case in 0..3000 {
+            let inputs = rng.random_range(0..=3);
+            let (a, b) = (random(&mut rng, inputs), random(&mut rng, inputs));
+            let most = a.net_count().min(b.net_count()).min(rng.random_range(1..=5));
+            let (of_a, of_b) = (some(&mut rng, &a, most), some(&mut rng, &b, most));
+            let project =
+                |circuit: &Circuit, nets: &[NetId]| StateSet::of(circuit, &control).unwrap().project(nets).unwrap();
+            let (shown_a, shown_b) = (shown(&a, &of_a), shown(&b, &of_b));
+            let first = shown_a.difference(&shown_b).next().cloned();
+            let found = project(&a, &of_a).beyond(&project(&b, &of_b), &control).unwrap();
+            assert_eq!(found, first, "case {case}: {shown_a:?} in {shown_b:?}");
+            within += usize::from(first.is_none() && !shown_a.is_empty());
+            beyond += usize::from(first.is_some());
+            empty += usize::from(shown_a.is_empty());
+        }
+        assert!(within > 200 && beyond > 500 && empty > 20, "{within} {beyond} {empty}");
+    }
+
+    #[test]
+    fn a_budget_that_runs_out_is_told() {
+        // a row of bits that another row repeats, in the same order or the other way round
+        let n = 12u32;
+        let pairs = |partner: &dyn Fn(u32) -> u32| {
+            let gate = |at: u32| GateSpec {
+                name: format!("g{at}"),
+                function: Function::Buf,
+                pins: vec![NetId(if at < n { at } else { partner(at - n) })],
+            };
+            let names: Vec<String> = (0..n).map(|input| format!("i{input}")).collect();
+            let names: Vec<&str> = names.iter().map(String::as_str).collect();
+            Circuit::new(&names, (0..2 * n).map(gate).collect(), vec![]).unwrap()
+        };
+        let (straight, crossed) = (pairs(&|at| at), pairs(&|at| n - 1 - at));
+        let nets: Vec<NetId> = (n..3 * n).map(NetId).collect();
+        let wide = Control::default();
+        let project = |circuit| StateSet::of(circuit, &wide).unwrap().project(&nets).unwrap();
+        let (a, b) = (project(&straight), project(&crossed));
+        assert_eq!(a.beyond(&a, &wide), Ok(None));
+        // the least row that is not the same both ways
+        let found = a.beyond(&b, &wide).unwrap().expect("they differ");
+        let row = |from: usize| found[from..from + n as usize].to_vec();
+        assert_eq!(row(0), row(n as usize), "straight");
+        assert_eq!(row(0).iter().filter(|bit| **bit).count(), 1, "{found:?}");
+        let narrow = Control { nodes: 100, ..Control::default() };
+        assert_eq!(a.beyond(&b, &narrow), Err(GaveUp::Budget { nodes: 100 }));
+    }
+}
