@@ -3,6 +3,7 @@
 #![allow(clippy::unwrap_used)] // a helper that fails is a test that fails
 
 mod commands;
+mod coverage;
 mod demonstrations;
 mod draws;
 mod engine_agrees;
@@ -10,6 +11,7 @@ mod engine_properties;
 mod golden;
 mod judges_agree;
 mod malformed;
+mod outcomes_agree;
 mod outside;
 mod support;
 mod sweeps_agree;

@@ -28,8 +28,8 @@ pub fn compared(
         Err(GaveUp::Budget { .. }) => Contained::GaveUp,
         Err(GaveUp::Cancelled) => return Err(FlowError::Cancelled),
     };
-    let bounced = Timeline::of(&scenario.stimulus).filter(|group| group.bounced).map(|group| group.moment);
-    let bounced: FxHashSet<u32> = bounced.collect();
+    let restless = Timeline::of(&scenario.stimulus).filter(|group| group.restless).map(|group| group.moment);
+    let restless: FxHashSet<u32> = restless.collect();
     let mut found = Compared { states, beyond: Vec::new(), choices: Vec::new(), compared: 0, not_compared: 0 };
     let steps = table.steps.iter().enumerate().map(|(at, it)| (TransitionRef::Step(at as u32), it));
     let single = table.single.iter().enumerate().map(|(at, it)| (TransitionRef::Single(at as u32), it));
@@ -38,7 +38,7 @@ pub fn compared(
             return Err(FlowError::Cancelled);
         }
         let change = &transition.change;
-        let coming = match (transition.moment.is_some_and(|moment| bounced.contains(&moment)), change.apart) {
+        let coming = match (transition.moment.is_some_and(|moment| restless.contains(&moment)), change.apart) {
             (true, _) => Coming::Restless(change.set.iter().map(|(net, _)| *net).collect()),
             (false, true) => Coming::Apart,
             (false, false) => Coming::Together,

@@ -39,8 +39,8 @@ pub enum Coming {
     Together,
     /// One after the other, in any order (skew).
     Apart,
-    /// These, and whichever others change, any number of times before they stay (bounce, or steps of one instant with
-    /// skew that set an input twice).
+    /// These, and whichever others change, any number of times before they stay: bounce, or steps of one instant that set
+    /// an input twice, with skew.
     Restless(Vec<NetId>),
 }
 

@@ -37,13 +37,11 @@ pub(super) struct AgainstReference {
 /// How a moment changes its inputs.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 enum Way {
-    /// An edge of a clock, or power-up.
-    NoStep,
-    /// A step, all at one instant.
-    Plain,
-    /// A step with skew.
+    /// All at one instant.
+    Together,
+    /// With skew.
     Skewed,
-    /// A step with bounce.
+    /// With bounce.
     Bounced,
 }
 
@@ -65,8 +63,7 @@ impl AgainstReference {
             Some(step) if step.bounce.as_ref().is_some_and(|bounce| bounce.pulses.1 > 0) => Way::Bounced,
             // offsets that are all the same keep the changes together
             Some(step) if step.skew.is_some_and(|skew| !skew.is_exact()) => Way::Skewed,
-            Some(_) => Way::Plain,
-            None => Way::NoStep,
+            _ => Way::Together,
         });
         let sets = stimulus.moments.iter().map(|moment| match stimulus.step_of(moment) {
             Some(_) => stimulus.inputs_of(moment),
@@ -90,16 +87,21 @@ impl AgainstReference {
     pub(super) fn open(&mut self, moments: &[u32]) {
         let ways = moments.iter().map(|moment| self.ways[*moment as usize]);
         let (bounced, skewed) = (ways.clone().any(|it| it == Way::Bounced), ways.clone().any(|it| it == Way::Skewed));
-        let steps = ways.filter(|it| *it != Way::NoStep).count();
-        // of several steps with skew any may come last, so an input that two of them set may move to and fro
-        self.now = match (bounced || (skewed && steps > 1), skewed) {
-            (true, _) => {
+        self.now = match skewed {
+            _ if bounced || (skewed && self.sets_twice(moments)) => {
                 let all = moments.iter().flat_map(|moment| &self.sets[*moment as usize]);
                 Coming::Restless(all.copied().collect())
             }
-            (false, true) => Coming::Apart,
-            (false, false) => Coming::Together,
+            true => Coming::Apart,
+            false => Coming::Together,
         };
+    }
+
+    /// Does an input belong to two listed steps of these? With skew either may come last.
+    fn sets_twice(&self, moments: &[u32]) -> bool {
+        let mut all: Vec<NetId> = moments.iter().flat_map(|moment| &self.sets[*moment as usize]).copied().collect();
+        all.sort_unstable();
+        all.windows(2).any(|pair| pair[0] == pair[1])
     }
 
     /// A whole window ends. `before`: the state before it, if it began at rest and without X.
