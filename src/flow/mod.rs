@@ -11,21 +11,25 @@
 
 mod automaton;
 mod classes;
+mod compared;
 mod coverage;
 mod cures;
 mod follow;
 mod hazards;
 mod lay_out;
 mod outcomes;
+mod reference;
 mod table;
 #[cfg(test)]
 mod tests;
 mod timeline;
 mod tour;
 
+pub use compared::compared;
 pub use follow::{follow, outside, winners_are_valid};
 pub use hazards::{Hazards, MAX_CHANGING, hazards};
 pub use lay_out::lay_out;
+pub use reference::{Allowed, Answer, Coming, List, Passed, View};
 pub use timeline::{Group, Timeline};
 pub use tour::{Tour, tour};
 
@@ -354,7 +358,9 @@ pub fn flow(scenario: &Scenario, state_variables: &[NetId], control: &Control) -
     let automaton = Automaton::of(scenario, &table, state_variables);
     let found = hazards(&scenario.circuit, &scenario.watched, &table, control)?;
     let (hazards, hazards_truncated, hazards_not_judged) = (found.list, found.truncated, found.not_judged);
-    // the comparison with the reference reads the finished table
-    let compared = None;
+    let compared = match &scenario.reference {
+        Some(reference) => Some(compared(scenario, &Allowed::of(reference.clone(), control), &table, control)?),
+        None => None,
+    };
     Ok(Flow { table, coverage, automaton, hazards, hazards_truncated, hazards_not_judged, compared })
 }
