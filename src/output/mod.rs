@@ -7,6 +7,8 @@
 mod assumptions;
 pub mod bundle;
 pub mod charts;
+pub mod flow_map;
+mod flow_words;
 mod ink;
 pub mod instance;
 pub mod json;

@@ -3,6 +3,7 @@
 use crate::circuit::NetId;
 use crate::engine::Trace;
 use crate::findings::{Asked, Fact, Reason};
+use crate::flow::Flow;
 use crate::instance::{Instance, Which};
 use crate::logic::Bits;
 use crate::sweep::SweepReport;
@@ -47,6 +48,8 @@ pub struct StatesReport {
     pub inputs_truncated: bool,
     /// Input vectors with no, one, several stable states, in decimal; `None` if the budget ran out.
     pub vectors: Option<[String; 3]>,
+    /// The flow table and what is read off it; `None` if it was not computed.
+    pub flow: Option<Flow>,
 }
 
 /// The verdict of a review or sweep.

@@ -53,6 +53,7 @@ pub fn states(circuit: &Circuit, control: &Control) -> StatesReport {
         inputs: Vec::new(),
         inputs_truncated: true,
         vectors: None,
+        flow: None,
     };
     let Ok(set) = StateSet::of(circuit, control) else { return report };
     report.count = Some(set.count().to_string());

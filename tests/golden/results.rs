@@ -171,6 +171,7 @@ pub fn states(scenario: &Scenario) -> StatesReport {
         ],
         inputs_truncated: false,
         vectors: Some(["0".into(), "3".into(), "1".into()]),
+        flow: None,
     }
 }
 
