@@ -13,7 +13,7 @@ pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
     let scenario = load(input)?.scenario;
     let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(true, "states");
-    let report = review::states(&scenario.circuit, &control);
+    let report = review::states(&scenario, &control)?;
     finish(bar);
     if control.cancelled() {
         return Err(Failure::Interrupted);

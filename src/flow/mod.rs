@@ -3,9 +3,26 @@
 //! compares with the reference network.
 //!
 //! Everything is said of the circuit alone: a hazard is the ability to glitch, not a glitch that was seen.
+//!
+//! Outcomes come from the multiple-winner method where it holds: every gate is inertial, no wire has a delay of its own,
+//! and the contacts of the step do not bounce. Elsewhere a pulse may arrive after its cause is over, so that the method is
+//! no bound; there, and where it takes more than its budget, outcomes are bounded by ternary simulation, which is never
+//! optimistic. Every step is taken to come at rest.
+
+mod automaton;
+mod classes;
+mod components;
+mod coverage;
+mod outcomes;
+mod table;
+mod timeline;
+
+pub use timeline::{Group, Timeline};
 
 use crate::circuit::NetId;
+use crate::control::Control;
 use crate::logic::{Bits, Shape, State};
+use crate::scenario::Scenario;
 use crate::statics::{Change, Race};
 
 /// A stable state of a flow table, by its number there.
@@ -121,7 +138,7 @@ pub struct Coverage {
 }
 
 /// The circuit read as an automaton.
-#[derive(Clone, Debug, PartialEq, Eq)]
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
 pub struct Automaton {
     /// How its outputs depend on its state.
     pub reading: Reading,
@@ -138,9 +155,10 @@ pub struct Automaton {
 }
 
 /// How outputs depend on the state, over the reachable stable states.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub enum Reading {
     /// There are no state variables: the outputs follow the inputs alone.
+    #[default]
     Combinational,
     /// The outputs are a function of the state variables.
     Moore,
@@ -256,7 +274,7 @@ pub struct Choice {
 }
 
 /// Everything that is known of a scenario without delays, beside its state set.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, Default)]
 pub struct Flow {
     /// The flow table.
     pub table: FlowTable,
@@ -268,4 +286,53 @@ pub struct Flow {
     pub hazards: Vec<Hazard>,
     /// Against the reference, if there is one.
     pub compared: Option<Compared>,
+}
+
+/// Why there is no delay-free view.
+#[derive(Clone, Debug, PartialEq, Eq, thiserror::Error)]
+pub enum FlowError {
+    /// Two methods contradict each other: a defect of the program.
+    #[error("{0}")]
+    Contradiction(String),
+    /// The caller asked to stop.
+    #[error("interrupted")]
+    Cancelled,
+}
+
+/// The delay-free view of a scenario; `state_variables` are those of its
+/// [`StateSet`](crate::statics::StateSet::state_variables), or other nets that determine the state (feedback nets).
+///
+/// ```
+/// use stillgate::control::Control;
+/// use stillgate::flow::flow;
+///
+/// let text = r#"
+/// outputs = ["c"]
+/// [inputs]
+/// a = 0
+/// b = 0
+/// [gates]
+/// c = { majority = ["a", "b", "c"] }
+/// [[steps]]
+/// set = { a = 1 }
+/// [[steps]]
+/// set = { b = 1 }
+/// "#;
+/// let scenario = stillgate::reader::read(text, "c-element.toml").unwrap().scenario;
+/// let c = scenario.circuit.net("c").unwrap();
+/// let flow = flow(&scenario, &[c], &Control::default()).unwrap();
+/// // c follows where a and b agree, and holds where they do not
+/// assert_eq!(flow.table.states.len(), 6);
+/// assert_eq!((flow.coverage.exercised, flow.coverage.all), (2, 12));
+/// ```
+///
+/// Errors: see [`FlowError`].
+pub fn flow(scenario: &Scenario, state_variables: &[NetId], control: &Control) -> Result<Flow, FlowError> {
+    let table = table::table(scenario, table::Limits::default(), control)?;
+    let coverage = Coverage::of(&table);
+    let automaton = Automaton::of(scenario, &table, state_variables);
+    // hazards and the comparison with the reference read the finished table
+    let hazards = Vec::new();
+    let compared = None;
+    Ok(Flow { table, coverage, automaton, hazards, compared })
 }

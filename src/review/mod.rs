@@ -15,6 +15,7 @@ use crate::circuit::NetId;
 use crate::control::Control;
 use crate::engine::Program;
 use crate::findings::{Asked, Kind, RuleKey};
+use crate::flow::FlowError;
 use crate::instance::Which;
 use crate::scenario::Scenario;
 use crate::statics;
@@ -32,6 +33,15 @@ pub enum ReviewError {
     /// The control cancelled it before anything could be said.
     #[error("interrupted")]
     Cancelled,
+}
+
+impl From<FlowError> for ReviewError {
+    fn from(error: FlowError) -> ReviewError {
+        match error {
+            FlowError::Contradiction(what) => ReviewError::Contradiction(what),
+            FlowError::Cancelled => ReviewError::Cancelled,
+        }
+    }
 }
 
 /// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
@@ -70,7 +80,7 @@ pub fn review(
     control: &Control,
 ) -> Result<Review, ReviewError> {
     let asked = Asked::of(scenario);
-    let states = states(&scenario.circuit, control);
+    let states = states(scenario, control)?;
     let typical = match scenario.cannot_run {
         true => None,
         false => Some(run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?),

@@ -48,8 +48,8 @@ pub struct StatesReport {
     pub inputs_truncated: bool,
     /// Input vectors with no, one, several stable states, in decimal; `None` if the budget ran out.
     pub vectors: Option<[String; 3]>,
-    /// The flow table and what is read off it; `None` if it was not computed.
-    pub flow: Option<Flow>,
+    /// What may follow what: flow table, coverage, automaton, hazards, reference.
+    pub flow: Flow,
 }
 
 /// The verdict of a review or sweep.

@@ -1,8 +1,10 @@
 //! The delay-free view: where may a circuit rest at all?
 //!
 //! A stable state gives every net a value such that every gate's output equals its function. [`StateSet`] holds all of
-//! them, [`rest`] finds the one that fits given inputs, [`is_stable`] tests one, and [`ternary`] computes with X.
+//! them, [`rest`] finds the one that fits given inputs, [`stable_states`] lists those that agree with what is known,
+//! [`is_stable`] tests one, and [`ternary`] computes with X.
 
+mod agreeing;
 mod change;
 mod diagram;
 mod fewest;
@@ -19,6 +21,7 @@ mod state_variables;
 pub mod ternary;
 mod walk;
 
+pub use agreeing::stable_states;
 pub use change::Change;
 pub use outcome::{Outcome, Race, bound, outcome};
 pub use product::Rows;

@@ -4,6 +4,7 @@ use stillgate::circuit::NetId;
 use stillgate::findings::{Asked, Kind, Reason, RuleKey, Shape, Subject};
 use stillgate::instance::Which;
 use stillgate::logic::{Bits, State, Value};
+use stillgate::flow::Flow;
 use stillgate::review::{Call, Review, StatesReport, Verdict};
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport, Worst};
@@ -171,7 +172,7 @@ pub fn states(scenario: &Scenario) -> StatesReport {
         ],
         inputs_truncated: false,
         vectors: Some(["0".into(), "3".into(), "1".into()]),
-        flow: None,
+        flow: Flow::default(),
     }
 }
 

@@ -1,0 +1,271 @@
+//! What may follow a change, with stable states by number: each asked for once, and checked.
+//!
+//! The multiple-winner method (general multiple winner, Brzozowski and Seger) holds for inertial gates, without wires
+//! that have delays of their own, and for inputs that change once. In all other cases the outcome is the bound of ternary
+//! simulation (Eichelberger 1965), which holds for any filter, for wires and for contacts that bounce.
+
+use rustc_hash::FxHashMap;
+
+use super::{FlowError, Reached, StateNumber};
+use crate::circuit::{Circuit, NetId};
+use crate::control::Control;
+use crate::delay::Filter;
+use crate::logic::{Bits, State, Value};
+use crate::scenario::Scenario;
+use crate::statics::{Change, GaveUp, Outcome, is_stable, outcome, stable_states, ternary};
+
+/// Most nodes of the decision diagram that lists the stable states that agree with a bound.
+const NODES: usize = 1 << 13;
+
+/// Stable states by number, and what may follow each change that was asked for.
+pub(super) struct Outcomes<'a> {
+    circuit: &'a Circuit,
+    control: &'a Control,
+    /// Does the multiple-winner method hold for this circuit?
+    exact: bool,
+    /// Most stable states listed for one bound.
+    agreeing: usize,
+    pub states: Vec<Bits>,
+    numbers: FxHashMap<Bits, StateNumber>,
+    asked: FxHashMap<Question, u32>,
+    found: Vec<Found>,
+    /// Values of nets computed so far, about: a measure of the work done.
+    pub work: usize,
+}
+
+/// From which state, the inputs that move, and whether they bounce.
+type Question = (StateNumber, Change, bool);
+
+/// What follows, and what ternary simulation says of it.
+struct Found {
+    to: Reached,
+    bound: State,
+}
+
+/// The number of an answer.
+#[derive(Clone, Copy)]
+pub(super) struct Answer(u32);
+
+impl Found {
+    fn rests(&self) -> bool {
+        match &self.to {
+            Reached::Exact { cycles, .. } => *cycles == 0,
+            Reached::Bound { .. } => self.to.only().is_some(),
+        }
+    }
+}
+
+impl<'a> Outcomes<'a> {
+    pub fn of(scenario: &'a Scenario, agreeing: usize, control: &'a Control) -> Outcomes<'a> {
+        let circuit = &*scenario.circuit;
+        let inertial = scenario.delays.filter.iter().all(|filter| *filter == Filter::Inertial);
+        Outcomes {
+            circuit,
+            control,
+            exact: inertial && circuit.wire_count() == 0,
+            agreeing,
+            states: Vec::new(),
+            numbers: FxHashMap::default(),
+            asked: FxHashMap::default(),
+            found: Vec::new(),
+            work: 0,
+        }
+    }
+
+    /// The number of a stable state; a new one is added.
+    pub fn number(&mut self, state: Bits) -> StateNumber {
+        let next = self.states.len() as StateNumber;
+        *self.numbers.entry(state).or_insert_with_key(|state| {
+            self.states.push(state.clone());
+            next
+        })
+    }
+
+    /// Finds out what may follow a change.
+    pub fn after(&mut self, from: StateNumber, change: &Change, bounced: bool) -> Result<Answer, FlowError> {
+        let asked = self.question(from, change, bounced);
+        if let Some(at) = self.asked.get(&asked) {
+            return Ok(Answer(*at));
+        }
+        let found = self.find(from, &asked.1, bounced)?;
+        let at = self.found.len() as u32;
+        self.found.push(found);
+        self.asked.insert(asked, at);
+        Ok(Answer(at))
+    }
+
+    /// What may follow.
+    pub fn reached(&self, answer: Answer) -> &Reached {
+        &self.found[answer.0 as usize].to
+    }
+
+    /// Does the circuit surely rest in one of the states that are listed?
+    pub fn rests(&self, answer: Answer) -> bool {
+        self.found[answer.0 as usize].rests()
+    }
+
+    /// What is known of the circuit afterwards.
+    pub fn known(&self, answer: Answer) -> State {
+        let found = &self.found[answer.0 as usize];
+        match found.to.only() {
+            Some(state) => State::known(self.states[state as usize].clone()),
+            None => found.bound.clone(),
+        }
+    }
+
+    /// What may follow the change of one input, if that was asked before.
+    fn known_after(&self, from: StateNumber, input: NetId) -> Option<&Reached> {
+        let change = Change::of_one(&self.states[from as usize], input);
+        let at = self.asked.get(&(from, change, false))?;
+        Some(&self.found[*at as usize].to)
+    }
+
+    /// Of a change only what moves counts; one input alone cannot come apart.
+    fn question(&self, from: StateNumber, change: &Change, bounced: bool) -> Question {
+        let set: Vec<(NetId, bool)> = change.moving(&self.states[from as usize]).collect();
+        let apart = change.apart && set.len() > 1;
+        // contacts that have moved already may bounce all the same
+        if bounced {
+            return (from, change.clone(), true);
+        }
+        (from, Change { set, apart }, false)
+    }
+
+    fn find(&mut self, from: StateNumber, change: &Change, bounced: bool) -> Result<Found, FlowError> {
+        let known = State::known(self.states[from as usize].clone());
+        let bound = self.spread(&known, change, bounced);
+        let outcome = match self.exact && !bounced {
+            true => outcome(self.circuit, &known.ones, change, self.control).map_err(|_| FlowError::Cancelled)?,
+            false => Outcome::Bound(bound.clone()),
+        };
+        let to = match outcome {
+            Outcome::Exact { states, cycles, race } => {
+                self.check(from, change, &states, cycles, &bound)?;
+                let mut states: Vec<StateNumber> = states.into_iter().map(|state| self.number(state)).collect();
+                states.sort_unstable();
+                Reached::Exact { states, cycles, race }
+            }
+            Outcome::Bound(state) => {
+                let (states, truncated) = self.agreeing(&state)?;
+                if states.is_empty() && !state.has_unknown() {
+                    return Err(self.contradiction(
+                        from,
+                        change,
+                        "ternary simulation ends in a state that is not stable",
+                    ));
+                }
+                Reached::Bound { state, states, truncated }
+            }
+        };
+        Ok(Found { to, bound })
+    }
+
+    /// The stable states that agree with a state whose inputs are known, ascending, and whether there may be more.
+    pub fn agreeing(&mut self, known: &State) -> Result<(Vec<StateNumber>, bool), FlowError> {
+        let nodes = if self.control.nodes == 0 { NODES } else { self.control.nodes.min(NODES) };
+        let control = Control { nodes, ..self.control.clone() };
+        match stable_states(self.circuit, known, self.agreeing, &control) {
+            Ok((states, more)) => {
+                self.work += (1 + states.len()) * self.circuit.net_count();
+                let mut states: Vec<StateNumber> = states.into_iter().map(|state| self.number(state)).collect();
+                states.sort_unstable();
+                Ok((states, more))
+            }
+            Err(GaveUp::Budget { nodes }) => {
+                self.work += nodes + self.circuit.net_count();
+                Ok((Vec::new(), true))
+            }
+            Err(GaveUp::Cancelled) => Err(FlowError::Cancelled),
+        }
+    }
+
+    /// What is known after a change from a state of which only part may be known: see [`crate::statics::bound`].
+    pub fn spread(&mut self, known: &State, change: &Change, bounced: bool) -> State {
+        self.work += self.circuit.net_count();
+        let mut state = known.clone();
+        for (net, bit) in &change.set {
+            if bounced || state.get(net.index()).known() != Some(*bit) {
+                state.set(net.index(), Value::X);
+            }
+        }
+        ternary::spread(self.circuit, &mut state);
+        for (net, bit) in &change.set {
+            state.set(net.index(), (*bit).into());
+        }
+        ternary::settle(self.circuit, &mut state);
+        state
+    }
+
+    /// Ternary simulation is an upper bound of the multiple-winner method; what it knows must be so.
+    fn check(
+        &self,
+        from: StateNumber,
+        change: &Change,
+        states: &[Bits],
+        cycles: u64,
+        bound: &State,
+    ) -> Result<(), FlowError> {
+        for state in states {
+            let differs =
+                |net: &NetId| bound.get(net.index()).known().is_some_and(|known| known != state.get(net.index()));
+            if let Some(net) = self.circuit.nets().find(differs) {
+                let what = format!(
+                    "`{}` may come to rest at {}, ternary simulation rules that out",
+                    self.circuit.name(net),
+                    u8::from(state.get(net.index()))
+                );
+                return Err(self.contradiction(from, change, &what));
+            }
+            if !is_stable(self.circuit, &State::known(state.clone())) {
+                return Err(self.contradiction(
+                    from,
+                    change,
+                    "the multiple-winner method ends in a state that is not stable",
+                ));
+            }
+        }
+        if cycles > 0 && !bound.has_unknown() {
+            return Err(self.contradiction(
+                from,
+                change,
+                "the circuit may oscillate, ternary simulation rules that out",
+            ));
+        }
+        if cycles == 0 && states.is_empty() {
+            return Err(self.contradiction(from, change, "the circuit comes to no rest and does not oscillate either"));
+        }
+        Ok(())
+    }
+
+    /// Two methods contradict each other: a defect of the program.
+    pub fn contradiction(&self, from: StateNumber, change: &Change, what: &str) -> FlowError {
+        let list = |values: &mut dyn Iterator<Item = (NetId, bool)>| {
+            let all: Vec<String> =
+                values.map(|(net, bit)| format!("{} = {}", self.circuit.name(net), u8::from(bit))).collect();
+            all.join(", ")
+        };
+        let state = &self.states[from as usize];
+        let nets = self.circuit.inputs().chain(self.circuit.feedback().iter().copied());
+        let before = list(&mut nets.map(|net| (net, state.get(net.index()))));
+        let after = list(&mut change.set.iter().copied());
+        FlowError::Contradiction(format!("from the stable state {{ {before} }}, after {{ {after} }}: {what}"))
+    }
+
+    /// Unger's test for an essential hazard (Unger 1959): does one change of the input lead to another state than three,
+    /// there, back and there again? Outcomes that are not unique have none. `None` where the method does not say, or was
+    /// not asked.
+    pub fn essential(&self, from: StateNumber, input: NetId) -> Option<bool> {
+        let mut at = from;
+        let mut first = None;
+        for _ in 0..3 {
+            let to = self.known_after(at, input)?;
+            at = match (to.only(), to) {
+                (Some(state), _) => state,
+                (None, Reached::Exact { .. }) => return Some(false),
+                (None, Reached::Bound { .. }) => return None,
+            };
+            first = first.or(Some(at));
+        }
+        Some(first != Some(at))
+    }
+}
