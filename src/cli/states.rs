@@ -25,6 +25,13 @@ pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
         say(&text::states(&scenario, &report, &page(called(input).as_deref())))?;
     }
     let mut bundle = Bundle::default();
+    let map = crate::output::flow_map::Map {
+        scenario: &scenario,
+        flow: &report.flow,
+        state_variables: &report.state_variables,
+        id: "states",
+    };
+    bundle.add("states.svg", crate::output::flow_map::svg(&map));
     bundle.add("states.csv", tables::states(&scenario, &report));
     bundle.add("states.json", document);
     write(&bundle, &folder, input.quiet || input.json)?;

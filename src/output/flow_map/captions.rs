@@ -42,8 +42,6 @@ pub(super) struct Key {
     pub rows: usize,
     /// Width of a column.
     pub pitch: f64,
-    /// More steps than are listed.
-    pub more: usize,
 }
 
 impl Key {
@@ -91,7 +89,7 @@ pub(super) fn key(map: &Map<'_>, chosen: &Chosen, style: Style, room: f64) -> Ke
         })
         .collect();
     let rows = entries.len().div_ceil(columns as usize);
-    Key { rows, pitch, more: chosen.steps.len() - entries.len(), entries }
+    Key { rows, pitch, entries }
 }
 
 /// What a reader must know beside the drawing, in lines no wider than the room.
@@ -136,6 +134,10 @@ pub(super) fn notes(
     if chosen.single_left_out > 0 {
         let many = words::many(chosen.single_left_out as u64, "change");
         notes.push(format!("Not drawn: {many} of a single input that no step makes (see transitions.csv)."));
+    }
+    if style == Style::Signs && chosen.steps.len() > KEY {
+        let left = words::many((chosen.steps.len() - KEY) as u64, "arrow");
+        notes.push(format!("The list of steps leaves out {left}; transitions.csv has them."));
     }
     if chosen.idle > 0 {
         notes.push(format!("Not drawn: {} that change nothing where they come.", words::many(chosen.idle as u64, "step")));
