@@ -14,3 +14,4 @@ mod outside;
 mod support;
 mod sweeps_agree;
 mod verdicts;
+mod views_agree;

@@ -13,11 +13,15 @@ mod automaton;
 mod classes;
 mod components;
 mod coverage;
+mod follow;
 mod outcomes;
 mod table;
 mod timeline;
+mod tour;
 
+pub use follow::{follow, outside, winners_are_valid};
 pub use timeline::{Group, Timeline};
+pub use tour::{MOST_STEPS, Tour, tour};
 
 use crate::circuit::NetId;
 use crate::control::Control;

@@ -1,6 +1,7 @@
 //! The views put together: runs, states and sweep of one scenario, the checks of the views against each other, and the
 //! verdict. Plain data; nothing is drawn here.
 
+mod contained;
 mod report;
 mod single;
 mod verdict;
@@ -45,7 +46,7 @@ impl From<FlowError> for ReviewError {
 }
 
 /// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
-/// settled state is a stable state. A cancelled sweep concludes from what was complete.
+/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows. A cancelled sweep concludes from what was complete.
 pub fn sweep(
     scenario: &Scenario,
     program: &Program,
@@ -67,6 +68,7 @@ pub fn sweep(
             }
         }
     }
+    contained::sweep(scenario, &tally, &Control::default())?;
     Ok(report)
 }
 
@@ -85,6 +87,9 @@ pub fn review(
         true => None,
         false => Some(run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?),
     };
+    if let Some(typical) = &typical {
+        contained::run(scenario, "the typical run", &typical.trace, control)?;
+    }
     let sweep = sweep(scenario, program, &asked, threads, control)?;
     let mut shown = Vec::new();
     for index in to_show(&asked, &sweep) {

@@ -20,10 +20,11 @@ mod state_set;
 mod state_variables;
 pub mod ternary;
 mod walk;
+mod winners;
 
 pub use agreeing::stable_states;
 pub use change::Change;
-pub use outcome::{Outcome, Race, bound, outcome};
+pub use outcome::{Outcome, Race, bound, bound_restless, outcome};
 pub use product::Rows;
 pub use projection::Projection;
 pub use rest::{NoRest, rest};

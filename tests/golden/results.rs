@@ -2,9 +2,9 @@
 
 use stillgate::circuit::NetId;
 use stillgate::findings::{Asked, Kind, Reason, RuleKey, Shape, Subject};
+use stillgate::flow::Flow;
 use stillgate::instance::Which;
 use stillgate::logic::{Bits, State, Value};
-use stillgate::flow::Flow;
 use stillgate::review::{Call, Review, StatesReport, Verdict};
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport, Worst};

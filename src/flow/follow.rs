@@ -1,0 +1,59 @@
+//! What may follow a change of a scenario's circuit, by the method that its parts allow.
+
+use super::FlowError;
+use crate::circuit::Circuit;
+use crate::control::Control;
+use crate::delay::Filter;
+use crate::logic::{Bits, State};
+use crate::scenario::Scenario;
+use crate::statics::{self, Change, GaveUp, Outcome};
+
+/// Is the multiple-winner method valid for this scenario: is every gate inertial, and has no wire a delay? Else a pulse may
+/// arrive after its cause is over, and only ternary simulation bounds what follows (Mendler, Shiple, Berry, "Constructive
+/// Boolean circuits and the exactness of timed ternary simulation", Formal Methods in System Design 40, 2012).
+pub fn winners_are_valid(scenario: &Scenario) -> bool {
+    let inertial = |filter: &Filter| *filter == Filter::Inertial;
+    scenario.circuit.wire_count() == 0 && scenario.delays.filter.iter().all(inertial)
+}
+
+/// What may follow a change from a stable state of the scenario's circuit: exact where that is valid and within budget,
+/// else the ternary bound. `restless`: inputs may move back and forth before they stay, which only the bound covers.
+///
+/// Errors: the two methods contradict each other, or the caller asked to stop.
+pub fn follow(
+    scenario: &Scenario,
+    from: &Bits,
+    change: &Change,
+    restless: bool,
+    control: &Control,
+) -> Result<Outcome, FlowError> {
+    let circuit = &*scenario.circuit;
+    if restless {
+        return Ok(Outcome::Bound(statics::bound_restless(circuit, from, change).1));
+    }
+    let bound = statics::bound(circuit, from, change).1;
+    if !winners_are_valid(scenario) {
+        return Ok(Outcome::Bound(bound));
+    }
+    let outcome = statics::outcome(circuit, from, change, control).map_err(|_: GaveUp| FlowError::Cancelled)?;
+    if let Outcome::Exact { states, cycles, .. } = &outcome {
+        for state in states {
+            if let Some(net) = outside(circuit, state, &bound) {
+                return Err(FlowError::Contradiction(format!(
+                    "the multiple-winner method reaches a state in which `{net}` has another value than ternary simulation gives"
+                )));
+            }
+        }
+        if *cycles > 0 && !bound.has_unknown() {
+            let what = "the multiple-winner method finds a lasting cycle where ternary simulation gives one state";
+            return Err(FlowError::Contradiction(what.to_string()));
+        }
+    }
+    Ok(outcome)
+}
+
+/// The first net of a state that has another value than the bound, where that is known.
+pub fn outside<'a>(circuit: &'a Circuit, state: &Bits, bound: &State) -> Option<&'a str> {
+    let differs = |net: usize| !bound.unknown.get(net) && bound.ones.get(net) != state.get(net);
+    circuit.nets().find(|net| differs(net.index())).map(|net| circuit.name(net))
+}
