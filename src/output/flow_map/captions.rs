@@ -148,7 +148,7 @@ pub(super) fn notes(
     if table.steps_truncated {
         notes.push("A limit cut the list of steps.".into());
     }
-    notes.extend(table.notes.iter().cloned());
+    notes.extend(table.notes.iter().map(|note| words::sentence(note)));
     notes.iter().flat_map(|note| wrap(&words::clean(note), room)).collect()
 }
 

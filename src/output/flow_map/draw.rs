@@ -6,7 +6,7 @@ use super::Map;
 use super::arrows::Place;
 use super::boxes::Line;
 use super::frame::{BOX_LINE, Block, Frame, LINE, MARGIN, PAD, RACE, Way};
-use super::labels::DISC;
+use super::labels::{BELOW, DISC};
 use super::legend::{Entry, SAMPLE, SPACE, Sample};
 use crate::output::flow_words;
 use crate::output::ink::{BODY, FINDING, INK, QUIET, SMALL};
@@ -211,8 +211,8 @@ fn label(way: &Way, begin: (f64, f64)) -> Markup {
                 (label.above)
             }
         }
-        @if !label.below.is_empty() {
-            text x=(number(x)) y=(number(begin.1 + 12.0)) text-anchor=(anchor) { (label.below) }
+        @for (i, line) in label.below.iter().enumerate() {
+            text x=(number(x)) y=(number(begin.1 + BELOW * (i + 1) as f64)) text-anchor=(anchor) { (line) }
         }
         @if let Some(step) = label.number {
             (disc(step, if way.rightwards { begin.0 + 4.0 + DISC } else { begin.0 - 4.0 - DISC }, begin.1))

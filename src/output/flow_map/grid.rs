@@ -1,4 +1,5 @@
-//! Which column and which row: boxes whose state variables agree stand in one row where that costs no height.
+//! Which column and which row: columns in the order of a Gray code from the start on, so that neighbours often differ in one
+//! input; boxes whose state variables agree stand in one row where that costs no height.
 
 use rustc_hash::FxHashMap;
 
@@ -57,7 +58,10 @@ impl Grid {
             .inputs()
             .filter(|net| columns.iter().any(|column| column.get(net.index()) != columns[0].get(net.index())))
             .collect();
-        columns.sort_by_cached_key(|column| gray_rank(column, &varying));
+        let order = significance(map, chosen, &varying);
+        let first = chosen.states.iter().find(|number| map.flow.table.start.contains(number));
+        let first = first.map_or_else(|| columns.first().cloned().unwrap_or_default(), |number| inputs(map, *number));
+        columns.sort_by_cached_key(|column| gray_rank(column, &first, &order));
         let of_inputs: FxHashMap<&Bits, usize> = columns.iter().enumerate().map(|(i, column)| (column, i)).collect();
 
         let mut nodes = Vec::new();
@@ -127,13 +131,28 @@ fn rows(map: &Map<'_>, nodes: &mut [Node]) -> usize {
     taken.len()
 }
 
-/// The place of an input vector in the reflected Gray code over these inputs, the first the most significant.
-fn gray_rank(inputs: &Bits, varying: &[NetId]) -> Vec<bool> {
+/// Inputs that steps change most often come last, so that these changes lead to the next column; else in net order.
+fn significance(map: &Map<'_>, chosen: &Chosen, varying: &[NetId]) -> Vec<NetId> {
+    let mut changes: FxHashMap<NetId, usize> = FxHashMap::default();
+    for arrow in &chosen.steps {
+        let from = &map.flow.table.states[arrow.from as usize].values;
+        for (net, _) in arrow.change.moving(from) {
+            *changes.entry(net).or_insert(0) += 1;
+        }
+    }
+    let mut order = varying.to_vec();
+    order.sort_by_key(|net| (changes.get(net).copied().unwrap_or(0), *net));
+    order
+}
+
+/// The place of an input vector in a reflected Gray code over these inputs, the first the most significant, that begins
+/// at `first`.
+fn gray_rank(inputs: &Bits, first: &Bits, order: &[NetId]) -> Vec<bool> {
     let mut odd = false;
-    varying
+    order
         .iter()
         .map(|net| {
-            odd ^= inputs.get(net.index());
+            odd ^= inputs.get(net.index()) != first.get(net.index());
             odd
         })
         .collect()
@@ -143,12 +162,19 @@ fn gray_rank(inputs: &Bits, varying: &[NetId]) -> Vec<bool> {
 mod tests {
     use super::*;
 
+    fn bits(text: &str) -> Bits {
+        Bits::of(text.bytes().map(|it| it == b'1'))
+    }
+
     #[test]
     fn columns_stand_as_in_a_karnaugh_map() {
-        let vectors = ["00", "10", "01", "11"].map(|text| Bits::of(text.chars().map(|it| it == '1').collect::<Vec<_>>().into_iter()));
-        let mut order = vectors.to_vec();
-        order.sort_by_cached_key(|it| gray_rank(it, &[NetId(0), NetId(1)]));
-        let [a, b, c, d] = vectors;
-        assert_eq!(order, [a, c, d, b], "00 01 11 10");
+        let sorted = |first: &str, order: [u32; 2]| {
+            let mut vectors = ["00", "10", "01", "11"];
+            vectors.sort_by_key(|it| gray_rank(&bits(it), &bits(first), &order.map(NetId)));
+            vectors
+        };
+        assert_eq!(sorted("00", [0, 1]), ["00", "01", "11", "10"]);
+        assert_eq!(sorted("11", [0, 1]), ["11", "10", "00", "01"], "the start stands first");
+        assert_eq!(sorted("00", [1, 0]), ["00", "10", "11", "01"], "net 0 changes first");
     }
 }

@@ -1,7 +1,7 @@
 //! The flow map: a flow table drawn as a state graph.
 //!
-//! One column an input vector, in the order of a Karnaugh map, so that neighbours often differ in one input; one box a stable
-//! state; one arrow a change. Arrows run between columns and in lanes between rows, never through a box: every box of a row
+//! One column an input vector, in the order of a Karnaugh map that begins at the start; one box a stable state; one arrow a
+//! change. Arrows run between columns and in lanes between rows, never through a box: every box of a row
 //! has the same height, and each end of an arrow has a height of its own, so that no two arrows lie on each other.
 
 mod arrows;
