@@ -14,14 +14,16 @@ mod classes;
 mod components;
 mod coverage;
 mod follow;
+mod lay_out;
 mod outcomes;
 mod table;
 mod timeline;
 mod tour;
 
 pub use follow::{follow, outside, winners_are_valid};
+pub use lay_out::lay_out;
 pub use timeline::{Group, Timeline};
-pub use tour::{MOST_STEPS, Tour, tour};
+pub use tour::{Tour, tour};
 
 use crate::circuit::NetId;
 use crate::control::Control;

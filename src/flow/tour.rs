@@ -16,7 +16,7 @@ const SETS: usize = 2048;
 /// States in one set that a homing sequence begins with.
 const TOGETHER: usize = 64;
 /// Steps of a walk, at most.
-pub const MOST_STEPS: usize = 1 << 13;
+pub(super) const MOST_STEPS: usize = 1 << 13;
 
 /// A walk over a flow table.
 #[derive(Clone, Debug, Default, PartialEq, Eq)]

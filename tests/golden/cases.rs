@@ -121,6 +121,7 @@ impl Case {
             steps: self.steps,
             clocks: Vec::new(),
             moments,
+            walk: Default::default(),
         };
         let outputs: Vec<NetId> =
             circuit.gates().map(|gate| circuit.net_of(gate)).filter(|net| circuit.readers(*net).is_empty()).collect();

@@ -181,6 +181,7 @@ impl World {
             moments: self.moments(),
             steps,
             clocks,
+            walk: Default::default(),
         };
         Scenario {
             title: "a test".into(),

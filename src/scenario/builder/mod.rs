@@ -68,6 +68,7 @@ pub struct Builder {
     groups: Vec<NewGroup>,
     steps: Vec<Listed>,
     clocks: Vec<NewClock>,
+    every_change: Option<Mark>,
     rules: NewRules,
     reference: Option<NewReference>,
     limit_transitions: Said<u64>,
@@ -111,6 +112,7 @@ impl Builder {
             groups: Vec::new(),
             steps: Vec::new(),
             clocks: Vec::new(),
+            every_change: None,
             rules: NewRules::default(),
             reference: None,
             limit_transitions: Said::from(Limits::default().transitions),
@@ -232,6 +234,13 @@ impl Builder {
     /// A periodic input.
     pub fn clock(&mut self, clock: NewClock) -> &mut Builder {
         self.clocks.push(clock);
+        self
+    }
+
+    /// In place of steps: every single-input change from every reachable stable state, each at rest. The scenario that
+    /// [`Builder::finish`] gives has no steps yet; [`crate::flow::lay_out`] adds them.
+    pub fn every_single_change(&mut self, mark: Mark) -> &mut Builder {
+        self.every_change = Some(mark);
         self
     }
 

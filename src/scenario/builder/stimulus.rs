@@ -8,7 +8,9 @@ use super::said::{NewBounce, NewClock, NewPlace, NewState, NewStep, Said};
 use super::{BeginAt, Builder};
 use crate::circuit::NetId;
 use crate::delay::DelayRange;
-use crate::scenario::{Bounce, Clock, EdgeCount, Expectation, Fault, Mark, Moment, MomentKind, Place, Step, Stimulus};
+use crate::scenario::{
+    Bounce, Clock, EdgeCount, Expectation, Fault, Mark, Moment, MomentKind, Place, Step, Stimulus, Walk,
+};
 use crate::time::{Span, Time};
 
 /// Most moments of one scenario: power-up, steps with their loops unrolled, and clock edges.
@@ -51,6 +53,7 @@ pub(super) fn check(context: &mut Context<'_>, told: &Builder, delays: &Checked)
         steps: Vec::new(),
         clocks,
         moments: Vec::new(),
+        walk: walk(context, told, delays.default_rest),
     };
     let power_up = told.begin.what != BeginAt::Rest;
     if !room(context, told, power_up) {
@@ -60,6 +63,32 @@ pub(super) fn check(context: &mut Context<'_>, told: &Builder, delays: &Checked)
     check_order(context, &templates, &order);
     label(context, &templates, &order, power_up, &mut stimulus);
     stimulus
+}
+
+/// Where the steps come from. A walk over every change moves the inputs alone, and has to know where it begins.
+fn walk(context: &mut Context<'_>, told: &Builder, rest: Span) -> Walk {
+    let Some(mark) = told.every_change else { return Walk::Written };
+    if let Some(listed) = told.steps.first() {
+        let other =
+            listed.times.map_or_else(|| listed.steps.first().map_or(listed.mark, |step| step.mark), |it| it.mark);
+        let message = "the walk over every single change takes the place of steps";
+        let fault = Fault::new(mark, message, "remove `stimulus`, or the steps");
+        context.faults.push(fault.related(other, "a step"));
+    }
+    if let Some(clock) = told.clocks.first() {
+        let message = "the walk over every single change moves all inputs itself, those of clocks too";
+        let fault = Fault::new(mark, message, "remove `stimulus`, or the clocks");
+        context.faults.push(fault.related(clock.net.mark, "a clock"));
+    }
+    if told.begin.what != BeginAt::Rest {
+        let message = "the walk over every single change has to know where it begins";
+        let fault = Fault::new(mark, message, "begin at rest: remove `begin`, or write steps");
+        context.faults.push(fault.related(told.begin.mark, "it begins elsewhere"));
+    }
+    if told.inputs.is_empty() {
+        context.faults.add(mark, "there is no input to change", "list inputs under `[inputs]`, or remove `stimulus`");
+    }
+    Walk::ToLayOut { rest, mark }
 }
 
 /// Is there room for all moments? The first thing that is too much is reported.
