@@ -36,20 +36,33 @@ pub fn follow(
         return Ok(Outcome::Bound(bound));
     }
     let outcome = statics::outcome(circuit, from, change, control).map_err(|_: GaveUp| FlowError::Cancelled)?;
-    if let Outcome::Exact { states, cycles, .. } = &outcome {
-        for state in states {
-            if let Some(net) = outside(circuit, state, &bound) {
-                return Err(FlowError::Contradiction(format!(
-                    "the multiple-winner method reaches a state in which `{net}` has another value than ternary simulation gives"
-                )));
-            }
+    match contradiction(circuit, &outcome, &bound) {
+        Some(what) => Err(FlowError::Contradiction(what)),
+        None => Ok(outcome),
+    }
+}
+
+/// What is wrong with an outcome beside its ternary bound: every state that the exact method reaches is stable and agrees
+/// with the bound, nothing oscillates where all is known, and something follows.
+pub(super) fn contradiction(circuit: &Circuit, outcome: &Outcome, bound: &State) -> Option<String> {
+    let Outcome::Exact { states, cycles, .. } = outcome else { return None };
+    for state in states {
+        if let Some(net) = outside(circuit, state, bound) {
+            return Some(format!(
+                "the multiple-winner method reaches a state in which `{net}` has another value than ternary simulation gives"
+            ));
         }
-        if *cycles > 0 && !bound.has_unknown() {
-            let what = "the multiple-winner method finds a lasting cycle where ternary simulation gives one state";
-            return Err(FlowError::Contradiction(what.to_string()));
+        if !statics::is_stable(circuit, &State::known(state.clone())) {
+            return Some("the multiple-winner method ends in a state that is not stable".into());
         }
     }
-    Ok(outcome)
+    if *cycles > 0 && !bound.has_unknown() {
+        return Some(
+            "the multiple-winner method finds a lasting cycle where ternary simulation gives one state".into(),
+        );
+    }
+    let nothing = states.is_empty() && *cycles == 0;
+    nothing.then(|| "the multiple-winner method finds neither rest nor a lasting cycle".into())
 }
 
 /// The first net of a state that has another value than the bound, where that is known.

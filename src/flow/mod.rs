@@ -11,7 +11,6 @@
 
 mod automaton;
 mod classes;
-mod components;
 mod coverage;
 mod follow;
 mod lay_out;

@@ -16,8 +16,9 @@ pub struct Group {
     pub moment: u32,
     /// All input changes. They may come one after the other if any of the steps has skew.
     pub change: Change,
-    /// Do contacts of any of the steps bounce?
-    pub bounced: bool,
+    /// May inputs move back and forth before they stay, also those that end where they were? So it is where contacts
+    /// bounce, and where steps of one instant set an input twice and one of them has skew.
+    pub restless: bool,
 }
 
 /// The groups of a scenario, made one by one as they are asked for.
@@ -118,8 +119,8 @@ impl Iterator for Timeline<'_> {
         let at = at.max(self.now);
         self.now = at;
         let mut set: BTreeMap<NetId, bool> = BTreeMap::new();
-        let mut group = Group { moment: 0, change: Change { set: Vec::new(), apart: false }, bounced: false };
-        let mut name = None;
+        let mut group = Group { moment: 0, change: Change { set: Vec::new(), apart: false }, restless: false };
+        let (mut name, mut twice) = (None, false);
         let mut waits = edge.is_none();
         while let Some(step) = self.stimulus.steps.get(self.step) {
             match self.placed(step) {
@@ -130,10 +131,12 @@ impl Iterator for Timeline<'_> {
             // what is placed at rest after a step of this instant is a batch of its own
             waits = false;
             name = name.or(Some(self.stimulus.moment_of_step(self.step as u32)));
-            set.extend(step.set.iter().copied());
+            for (net, bit) in &step.set {
+                twice |= set.insert(*net, *bit).is_some_and(|other| other != *bit);
+            }
             // offsets that are all the same keep the changes together
             group.change.apart |= step.skew.is_some_and(|skew| !skew.is_exact());
-            group.bounced |= step.bounce.as_ref().is_some_and(|bounce| bounce.pulses.1 > 0);
+            group.restless |= step.bounce.as_ref().is_some_and(|bounce| bounce.pulses.1 > 0);
             self.last_step = at;
             self.step += 1;
         }
@@ -146,6 +149,7 @@ impl Iterator for Timeline<'_> {
             name = name.or(Some(self.base[number as usize] + edge));
             self.wait_for(number, edge + 1);
         }
+        group.restless |= twice && group.change.apart;
         group.moment = name.expect("a step or an edge is due");
         group.change.set = set.into_iter().collect();
         Some(group)

@@ -24,7 +24,7 @@ mod winners;
 
 pub use agreeing::stable_states;
 pub use change::Change;
-pub use outcome::{Outcome, Race, bound, bound_restless, outcome};
+pub use outcome::{Outcome, Race, bound, bound_restless, outcome, outcome_of_many};
 pub use product::Rows;
 pub use projection::Projection;
 pub use rest::{NoRest, rest};

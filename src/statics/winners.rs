@@ -48,14 +48,16 @@ impl Effort {
 /// States between two looks at the cancel flag.
 const LOOK: usize = 1 << 10;
 
-/// The outcomes of a change, or `None` where they take more than the effort. `spread` is the first half of ternary
-/// simulation: the nets that may move are at X.
+/// The outcomes of a change, or `None` where they take more than the effort, or more than is `left` of a common budget:
+/// gates evaluated and firings followed are taken from it. `spread` is the first half of ternary simulation: the nets that
+/// may move are at X.
 pub(super) fn winners(
     circuit: &Circuit,
     from: &Bits,
     change: &Change,
     spread: &State,
     effort: Effort,
+    left: &mut usize,
     control: &Control,
 ) -> Result<Option<Outcome>, GaveUp> {
     let moving = Moving::of(circuit, from, change, spread);
@@ -73,7 +75,7 @@ pub(super) fn winners(
     let trunk = moving.with_sources((0..nodes as u32).filter(|node| cyclic[*node as usize]));
     let mut parts = Vec::new();
     for members in moving.parts(&trunk) {
-        match explore(&moving, &members, effort, control)? {
+        match explore(&moving, &members, effort, left, control)? {
             Some(found) => parts.push(Part { members, found }),
             None => return Ok(None),
         }
@@ -92,7 +94,7 @@ pub(super) fn winners(
     let race = if ends > 1 {
         Race::Critical
     } else {
-        match together(&moving, &parts, effort, control)? {
+        match together(&moving, &parts, effort, left, control)? {
             Some(true) => Race::NonCritical,
             Some(false) => Race::None,
             None => return Ok(None),
@@ -300,7 +302,13 @@ struct Found {
 }
 
 /// Are two nets of one loop ever excited together? `None`: too much to say.
-fn together(moving: &Moving<'_>, parts: &[Part], effort: Effort, control: &Control) -> Result<Option<bool>, GaveUp> {
+fn together(
+    moving: &Moving<'_>,
+    parts: &[Part],
+    effort: Effort,
+    left: &mut usize,
+    control: &Control,
+) -> Result<Option<bool>, GaveUp> {
     let mut loops: FxHashMap<u32, Vec<u32>> = FxHashMap::default();
     for (node, it) in moving.nodes.iter().enumerate() {
         if let Some(component) = it.component {
@@ -321,7 +329,7 @@ fn together(moving: &Moving<'_>, parts: &[Part], effort: Effort, control: &Contr
                     counted.push(part);
                     parts[part].found.excited_of(component)
                 }
-                None => match explore(moving, &members, effort, control)? {
+                None => match explore(moving, &members, effort, left, control)? {
                     Some(found) => found.excited_of(component),
                     None => return Ok(None),
                 },
@@ -342,7 +350,13 @@ impl Found {
 }
 
 /// Follows every firing of the nodes of one part from the start. `None`: more than the effort.
-fn explore(moving: &Moving<'_>, members: &[u32], effort: Effort, control: &Control) -> Result<Option<Found>, GaveUp> {
+fn explore(
+    moving: &Moving<'_>,
+    members: &[u32],
+    effort: Effort,
+    left: &mut usize,
+    control: &Control,
+) -> Result<Option<Found>, GaveUp> {
     let n = members.len();
     let place: FxHashMap<u32, u32> = members.iter().enumerate().map(|(i, node)| (*node, i as u32)).collect();
     let mut ties: Vec<Vec<u32>> = vec![Vec::new(); n];
@@ -373,9 +387,12 @@ fn explore(moving: &Moving<'_>, members: &[u32], effort: Effort, control: &Contr
             *most = (*most).max(count.min(2));
         }
         let Some(sets) = firing_sets(&now, &ties, effort.together) else { return Ok(None) };
-        if firings.len() + sets.len() > effort.firings {
+        let cost = n + sets.len();
+        if firings.len() + sets.len() > effort.firings || cost > *left {
+            *left = left.saturating_sub(cost);
             return Ok(None);
         }
+        *left -= cost;
         for set in &sets {
             let mut to = state.clone();
             set.iter().for_each(|at| to.flip(*at as usize));
