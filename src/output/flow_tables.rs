@@ -66,17 +66,7 @@ pub fn states(scenario: &Scenario, report: &StatesReport) -> String {
 pub fn transitions(scenario: &Scenario, report: &StatesReport) -> String {
     let table = &report.flow.table;
     write(|to| {
-        to.write_record([
-            "step",
-            "from",
-            "change",
-            "outcomes",
-            "oscillation",
-            "race",
-            "method",
-            "essential",
-            "sure",
-        ])?;
+        to.write_record(["step", "from", "change", "outcomes", "oscillation", "race", "method", "essential", "sure"])?;
         for transition in table.steps.iter().chain(&table.single) {
             to.write_record(row(scenario, transition))?;
         }

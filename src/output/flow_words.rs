@@ -2,7 +2,7 @@
 
 use crate::circuit::NetId;
 use crate::flow::{FlowTable, Reached, StateNumber, Transition};
-use crate::logic::{Bits, State, Value};
+use crate::logic::{Bits, Value};
 use crate::output::words;
 use crate::scenario::Scenario;
 use crate::statics::{Change, Race};
@@ -89,20 +89,14 @@ pub(super) fn values(table: &FlowTable, number: StateNumber) -> &Bits {
     &table.states[number as usize].values
 }
 
-/// The values of a state of the table, as a state.
-pub(super) fn known(table: &FlowTable, number: StateNumber) -> State {
-    State::known(values(table, number).clone())
-}
-
 /// From where, and what moves: `from S1 call_upper 0→1`.
 pub(super) fn from(scenario: &Scenario, table: &FlowTable, number: StateNumber, change: &Change) -> String {
     format!("from {} {}", state(number), moves(scenario, values(table, number), change))
 }
 
-/// The change of one input from a state: `call_upper 0→1`.
+/// The change of one input away from its value in a state: `from S1 call_upper 0→1`.
 pub(super) fn single(scenario: &Scenario, table: &FlowTable, number: StateNumber, input: NetId) -> String {
-    let from = values(table, number);
-    moves(scenario, from, &Change::of_one(from, input))
+    from(scenario, table, number, &Change::of_one(values(table, number), input))
 }
 
 /// The step of a transition in words, or what moves.
@@ -117,6 +111,7 @@ pub(super) fn what(scenario: &Scenario, table: &FlowTable, transition: &Transiti
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::logic::State;
 
     #[test]
     fn outcomes_in_one_field() {

@@ -1,7 +1,7 @@
 //! What stands in a box, and above a column.
 
 use super::Map;
-use super::labels::{BOLD, Style, letter};
+use super::labels::{BOLD, letter};
 use crate::circuit::NetId;
 use crate::logic::Bits;
 use crate::output::ink::{BODY, SMALL};
@@ -89,20 +89,20 @@ pub(super) struct Texts {
 }
 
 impl Texts {
-    pub fn new(map: &Map<'_>, varying: &[NetId], style: Style) -> Texts {
+    /// The texts of this map; `varying` are the inputs in headings, each after its letter where arrows speak of letters.
+    pub fn new(map: &Map<'_>, varying: &[NetId], with_letters: bool) -> Texts {
         let name = |net: NetId| words::net(map.scenario, net).to_string();
         let others = map.scenario.outputs.iter().copied();
-        let others = others
-            .filter(|net| !map.state_variables.contains(net) && !map.scenario.circuit.is_input(*net))
-            .collect();
-        let lettered = |net: NetId| match style {
-            Style::Words => name(net),
-            Style::Signs => format!("{} {}", letter(net), name(net)),
+        let others =
+            others.filter(|net| !map.state_variables.contains(net) && !map.scenario.circuit.is_input(*net)).collect();
+        let lettered = |net: NetId| match with_letters {
+            false => name(net),
+            true => format!("{} {}", letter(net), name(net)),
         };
         let variables = Nets::new(map.state_variables.to_vec(), name, NAMED, BODY * BOLD);
         let outputs = Nets::new(others, name, NAMED, SMALL);
         // all letters are wanted where arrows speak of them
-        let named = if style == Style::Signs { 16 } else { 2 * NAMED };
+        let named = if with_letters { 16 } else { 2 * NAMED };
         let heading = Nets::new(varying.to_vec(), lettered, named, SMALL);
         // the number of a state and its mark stand in one line
         let first = width("S1000", BODY * BOLD) + width("▸ start", SMALL);

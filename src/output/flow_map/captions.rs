@@ -8,11 +8,13 @@ use super::grid::Grid;
 use super::labels::{Style, letter, steps};
 use crate::circuit::NetId;
 use crate::output::ink::SMALL;
-use crate::output::measure::{cut_end, width};
+use crate::output::measure::{cut_end, cut_middle, width};
 use crate::output::{flow_words, words};
 
 /// Most names of a list in a note.
 const LISTED: usize = 40;
+/// Widest name of a list in a note, pixels.
+const NAME: f64 = 160.0;
 /// Most steps that the key lists.
 const KEY: usize = 60;
 /// Most states and arrows that the description tells of.
@@ -105,7 +107,7 @@ pub(super) fn notes(
     let mut notes = vec![extent(map, chosen, grid)];
     let constant: Vec<NetId> = scenario.circuit.inputs().filter(|net| !grid.varying.contains(net)).collect();
     if let (Some(first), false) = (grid.columns.first(), constant.is_empty()) {
-        let value = |net: &NetId| format!("{}={}", words::net(scenario, *net), u8::from(first.get(net.index())));
+        let value = |net: &NetId| format!("{}={}", short(map, *net), u8::from(first.get(net.index())));
         let all: Vec<String> = constant.iter().map(value).collect();
         let all: Vec<&str> = all.iter().map(String::as_str).collect();
         notes.push(format!("In every column: {}.", words::some_names(&all, LISTED)));
@@ -113,7 +115,10 @@ pub(super) fn notes(
     let digits = |what: &str, nets: &Nets| {
         nets.digits.then(|| {
             let cut = if nets.cut { ", the first of" } else { "" };
-            format!("Digits, {what}{cut}: {}.", words::some_names(&words::nets(scenario, &nets.nets), LISTED))
+            let names: Vec<String> = nets.nets.iter().take(LISTED + 1).map(|net| short(map, *net)).collect();
+            let mut names: Vec<&str> = names.iter().map(String::as_str).collect();
+            names.resize(nets.nets.len(), "");
+            format!("Digits, {what}{cut}: {}.", words::some_names(&names, LISTED))
         })
     };
     notes.extend(digits("at the head of a column", &texts.heading));
@@ -124,8 +129,7 @@ pub(super) fn notes(
             chosen.single.iter().flat_map(|arrow| arrow.change.set.iter().map(|(net, _)| *net)).collect();
         inputs.sort_unstable();
         inputs.dedup();
-        let all: Vec<String> =
-            inputs.iter().map(|net| format!("{} {}", letter(*net), words::net(scenario, *net))).collect();
+        let all: Vec<String> = inputs.iter().map(|net| format!("{} {}", letter(*net), short(map, *net))).collect();
         let all: Vec<&str> = all.iter().map(String::as_str).collect();
         if !all.is_empty() {
             notes.push(format!("Letters: {}; ↑ 0→1, ↓ 1→0.", words::some_names(&all, LISTED)));
@@ -140,16 +144,27 @@ pub(super) fn notes(
         notes.push(format!("The list of steps leaves out {left}; transitions.csv has them."));
     }
     if chosen.idle > 0 {
-        notes.push(format!("Not drawn: {} that change nothing where they come.", words::many(chosen.idle as u64, "step")));
+        notes.push(format!(
+            "Not drawn: {} that change nothing where they come.",
+            words::many(chosen.idle as u64, "step")
+        ));
     }
     if table.states_truncated {
-        notes.push("A limit cut the flow table: there are more stable states, or changes that were not looked at.".into());
+        notes.push(
+            "A limit cut the flow table: there are more stable states, or changes that were not looked at.".into(),
+        );
     }
     if table.steps_truncated {
         notes.push("A limit cut the list of steps.".into());
     }
     notes.extend(table.notes.iter().map(|note| words::sentence(note)));
     notes.iter().flat_map(|note| wrap(&words::clean(note), room)).collect()
+}
+
+/// The name of a net in a note.
+fn short(map: &Map<'_>, net: NetId) -> String {
+    let name = words::net(map.scenario, net);
+    cut_middle(name, SMALL, NAME).unwrap_or_else(|| name.to_string())
 }
 
 /// How much of the table is drawn.

@@ -53,8 +53,7 @@ impl Taken {
             states.filter(|number| !self.states.contains(number)).take(MOST_BOXES + 1).collect();
         let columns = new.iter().map(|number| inputs(map, *number)).chain(column.cloned());
         let columns: BTreeSet<Bits> = columns.filter(|column| !self.columns.contains(column)).collect();
-        let fits =
-            self.states.len() + new.len() <= MOST_BOXES && self.columns.len() + columns.len() <= MOST_COLUMNS;
+        let fits = self.states.len() + new.len() <= MOST_BOXES && self.columns.len() + columns.len() <= MOST_COLUMNS;
         if fits {
             self.states.extend(new);
             self.columns.extend(columns);
@@ -81,8 +80,7 @@ impl Chosen {
             taken.take(map, all, None) && steps.iter().chain(&single).all(|arrow| taken.take_arrow(map, arrow))
         };
         if whole {
-            let (single, left_out) =
-                if single.len() > MOST_ARROWS { (Vec::new(), single.len()) } else { (single, 0) };
+            let (single, left_out) = if single.len() > MOST_ARROWS { (Vec::new(), single.len()) } else { (single, 0) };
             return Chosen {
                 extent: Extent::Whole,
                 states: taken.states.into_iter().collect(),
@@ -107,8 +105,7 @@ impl Chosen {
         let extent = if steps.is_empty() { Extent::First } else { Extent::Steps };
         let many = single.len();
         let (steps, steps_left_out) = fitting(steps);
-        let (single, single_left_out) =
-            if extent == Extent::First { fitting(single) } else { (Vec::new(), many) };
+        let (single, single_left_out) = if extent == Extent::First { fitting(single) } else { (Vec::new(), many) };
         let states = taken.states.into_iter().collect();
         Chosen { extent, states, steps, single, steps_left_out, single_left_out, idle }
     }

@@ -117,7 +117,7 @@ impl Frame {
     }
 
     fn with(map: &Map<'_>, chosen: &Chosen, grid: &Grid, style: Style) -> Frame {
-        let texts = Texts::new(map, &grid.varying, style);
+        let texts = Texts::new(map, &grid.varying, style == Style::Signs && !chosen.single.is_empty());
         let layout = Layout::new(map, chosen, grid, style);
         let mut slots = layout.slots();
         let wide = texts.inside + 2.0 * PAD;
@@ -242,7 +242,15 @@ impl<'a> Layout<'a> {
             for (k, to) in link.to.iter().enumerate().filter(|it| Some(it.0) != straight) {
                 let other = self.lanes[i].map_or(2 * own + 1, |lane| 2 * lane.lane);
                 let (above, below) = race;
-                slots[gaps.to][row(*to)].push(Slot { link: i, target: Some(k), straight: false, other, above, below, y: 0.0 });
+                slots[gaps.to][row(*to)].push(Slot {
+                    link: i,
+                    target: Some(k),
+                    straight: false,
+                    other,
+                    above,
+                    below,
+                    y: 0.0,
+                });
             }
         }
         for rows in &mut slots {
@@ -300,7 +308,8 @@ impl<'a> Layout<'a> {
         let many = self.grid.columns.len();
         let mut pieces: Vec<Vec<Piece>> = Vec::new();
         pieces.resize_with(many.saturating_sub(1), Vec::new);
-        let mut places: Vec<(Option<(usize, usize)>, Option<(usize, usize)>)> = vec![(None, None); self.grid.links.len()];
+        let mut places: Vec<(Option<(usize, usize)>, Option<(usize, usize)>)> =
+            vec![(None, None); self.grid.links.len()];
         for (i, link) in self.grid.links.iter().enumerate() {
             let gaps = self.gaps[i];
             let begin = vec![self.y(slots, i, None)];

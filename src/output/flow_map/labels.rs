@@ -48,10 +48,9 @@ impl Label {
                 number: None,
                 bold: true,
             },
-            (Style::Words, true) => Label {
-                above: fit(&flow_words::moves(scenario, from, &arrow.change), ROOM),
-                ..Label::default()
-            },
+            (Style::Words, true) => {
+                Label { above: fit(&flow_words::moves(scenario, from, &arrow.change), ROOM), ..Label::default() }
+            }
             (Style::Signs, false) => Label { number: Some(number), ..Label::default() },
             (Style::Signs, true) => Label { above: sign(arrow, from), ..Label::default() },
         }
@@ -66,7 +65,7 @@ impl Label {
     /// How much height it takes above and below its line.
     pub fn heights(&self) -> (f64, f64) {
         let above: f64 = if self.above.is_empty() { 5.0 } else { 14.0 };
-        let below: f64 = if self.below.is_empty() { 4.0 } else { 3.0 + BELOW * self.below.len() as f64 };
+        let below: f64 = if self.below.is_empty() { 4.0 } else { 7.0 + BELOW * self.below.len() as f64 };
         let disc = if self.number.is_some() { DISC + 2.0 } else { 0.0 };
         (above.max(disc), below.max(disc))
     }

@@ -54,9 +54,13 @@ pub(super) fn legend(map: &Map<'_>, chosen: &Chosen, grid: &Grid, top: f64, room
         (Sample::Unreachable, "cannot be reached from the start", chosen.states.iter().any(|it| !state(*it).reachable)),
         (Sample::Step, "a step of the scenario", chosen.steps.iter().any(|arrow| arrow.sure)),
         (Sample::Unsure, "a step, if it meets this state", chosen.steps.iter().any(|arrow| !arrow.sure)),
-        (Sample::Single, "one input changes; no step does that (a gap in coverage)", !chosen.single.is_empty()),
-        (Sample::Race, "critical race: delays decide which follows", arrows().any(|arrow| arrow.is_race())),
-        (Sample::Loop, "may never come to rest", sign(Place::Loop)),
+        (Sample::Single, "one input changes, and no step does that (a gap in coverage)", !chosen.single.is_empty()),
+        (
+            Sample::Race,
+            "critical race: the delays decide which of these follows",
+            arrows().any(|arrow| arrow.is_race()),
+        ),
+        (Sample::Loop, "may oscillate for ever", sign(Place::Loop)),
         (Sample::Unknown, "what follows is known only in part (ternary bound)", sign(Place::Unknown)),
     ];
     let (mut x, mut y) = (MARGIN, top + LINE);

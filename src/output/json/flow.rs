@@ -236,10 +236,10 @@ pub(super) fn hazards<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Serial
         from: of.state(hazard.from),
         set: of.set(&hazard.change),
         states: hazard.states,
-        cure: hazard.cure.as_ref().map(|cure| Term {
-            literals: of.some(cure.literals.iter().copied()),
-            expression: &cure.expression,
-        }),
+        cure: hazard
+            .cure
+            .as_ref()
+            .map(|cure| Term { literals: of.some(cure.literals.iter().copied()), expression: &cure.expression }),
     })
 }
 
