@@ -11,6 +11,7 @@ use stillgate::review::{self, Call};
 fn every_demonstration_shows_what_it_says() {
     let table = [
         ("interlock", Call::Broken, Some(Kind::Glitch)),
+        ("interlock-walk", Call::Broken, Some(Kind::Glitch)),
         ("selector", Call::Broken, Some(Kind::Glitch)),
         ("selector-cured", Call::NoFailureFound, None),
         ("divider", Call::NoFailureFound, None),

@@ -3,6 +3,7 @@
 #![allow(clippy::unwrap_used)] // a helper that fails is a test that fails
 
 mod commands;
+mod coverage;
 mod demonstrations;
 mod draws;
 mod engine_agrees;

@@ -12,7 +12,7 @@ use rustc_hash::FxHashMap;
 use serde::{Deserialize, Serialize};
 
 pub use compiled::Compiled;
-pub use expr::{Expr, ExprError, MAX_EXPR_NETS};
+pub use expr::{Expr, ExprError, MAX_EXPR_NETS, Op};
 pub use function::{Arity, Function};
 pub(crate) use strongly::strong_components;
 pub use topology::NetSet;

@@ -12,7 +12,9 @@
 mod automaton;
 mod classes;
 mod coverage;
+mod cures;
 mod follow;
+mod hazards;
 mod lay_out;
 mod outcomes;
 mod table;
@@ -20,6 +22,7 @@ mod timeline;
 mod tour;
 
 pub use follow::{follow, outside, winners_are_valid};
+pub use hazards::{Hazards, MAX_CHANGING, hazards};
 pub use lay_out::lay_out;
 pub use timeline::{Group, Timeline};
 pub use tour::{Tour, tour};
@@ -171,25 +174,30 @@ pub enum Reading {
     Mealy(StateNumber, StateNumber),
 }
 
-/// The ability to glitch: a net that may change more often than it must.
+/// The ability to glitch: a net that may change more often than it must, while feedback nets hold their values.
+///
+/// There is one for each net, shape, cause and change: a step, or one input in one direction. Where the states need
+/// different cures, there is one for each cure.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Hazard {
     /// The net: watched, or a feedback net (what is wanted of it, before it moves).
     pub net: NetId,
-    /// What could be seen.
+    /// What could be seen, before any feedback net moves.
     pub shape: Shape,
     /// Function or logic.
     pub cause: Cause,
+    /// Only if the expressions and multiplexers on the way are built of several gates, one for each operator; as one gate
+    /// each, they do not show it.
+    pub built: bool,
     /// The moment of the scenario; `None` for single-input changes.
     pub moment: Option<u32>,
     /// The first state, in the order of the table, that has it.
     pub from: StateNumber,
-    /// The inputs that change.
+    /// The inputs that change, with their new values. A single-input change and its opposite are two hazards.
     pub change: Change,
-    /// From how many states of the table (for a step: that it can meet) this change, or its opposite for single-input
-    /// changes, has it.
+    /// From how many states of the table (for a step: that it can meet) this change has it.
     pub states: u64,
-    /// How to be rid of it, verified; only for static logic hazards.
+    /// How to be rid of it from all these states, verified; only for static logic hazards.
     pub cure: Option<Cure>,
 }
 
@@ -218,7 +226,7 @@ pub struct Cure {
     /// The literals, in net order: nets with the value at which the literal is true in a product (static-1), false in a
     /// sum (static-0).
     pub literals: Vec<(NetId, bool)>,
-    /// The whole new function as an expression, as in `(p | q) | b & c`.
+    /// The whole new function of the net's gate as an expression of a scenario, as in `p | q | b & c`.
     pub expression: String,
 }
 
@@ -287,8 +295,13 @@ pub struct Flow {
     pub coverage: Coverage,
     /// The circuit as an automaton.
     pub automaton: Automaton,
-    /// Hazards: of the steps first, then of single-input changes; by net.
+    /// Hazards: of the steps first, by moment, then of single-input changes; by net.
     pub hazards: Vec<Hazard>,
+    /// A limit cut the search for hazards or for their cures: there may be more.
+    pub hazards_truncated: bool,
+    /// Nets and changes, once for each state, of which nothing is known: too many inputs change at once to tell function
+    /// from logic, or too many changes to count.
+    pub hazards_not_judged: u64,
     /// Against the reference, if there is one.
     pub compared: Option<Compared>,
 }
@@ -336,8 +349,9 @@ pub fn flow(scenario: &Scenario, state_variables: &[NetId], control: &Control) -
     let table = table::table(scenario, table::Limits::default(), control)?;
     let coverage = Coverage::of(&table);
     let automaton = Automaton::of(scenario, &table, state_variables);
-    // hazards and the comparison with the reference read the finished table
-    let hazards = Vec::new();
+    let found = hazards(&scenario.circuit, &scenario.watched, &table, control)?;
+    let (hazards, hazards_truncated, hazards_not_judged) = (found.list, found.truncated, found.not_judged);
+    // the comparison with the reference reads the finished table
     let compared = None;
-    Ok(Flow { table, coverage, automaton, hazards, compared })
+    Ok(Flow { table, coverage, automaton, hazards, hazards_truncated, hazards_not_judged, compared })
 }

@@ -2,9 +2,10 @@
 //!
 //! A stable state gives every net a value such that every gate's output equals its function. [`StateSet`] holds all of
 //! them, [`rest`] finds the one that fits given inputs, [`stable_states`] lists those that agree with what is known,
-//! [`is_stable`] tests one, and [`ternary`] computes with X.
+//! [`is_stable`] tests one, and [`ternary`] computes with X. [`transients`] counts how often a net may change.
 
 mod agreeing;
+pub mod built;
 mod change;
 mod diagram;
 mod fewest;
@@ -19,6 +20,7 @@ mod rest;
 mod state_set;
 mod state_variables;
 pub mod ternary;
+pub mod transients;
 mod walk;
 mod winners;
 

@@ -3,9 +3,11 @@
 //! program or by hand, "from memory" a source that was not at hand, "common practice, no source" a fact of the trade.
 
 mod engine;
+mod hazards;
 mod large_networks;
 mod networks;
 mod random_networks;
 mod small_networks;
 mod stable_states;
 mod statistics;
+mod words_of_nets;
