@@ -14,6 +14,8 @@ mod grid;
 mod labels;
 mod lanes;
 mod legend;
+#[cfg(test)]
+mod tests;
 mod tracks;
 
 use crate::circuit::NetId;

@@ -89,6 +89,8 @@ impl Serialize for States<'_> {
         map.serialize_entry("coverage", &flow::coverage(scenario, flow))?;
         map.serialize_entry("automaton", &flow::automaton(scenario, flow))?;
         map.serialize_entry("hazards", &flow::hazards(scenario, flow))?;
+        map.serialize_entry("hazards_truncated", &flow.hazards_truncated)?;
+        map.serialize_entry("hazards_not_judged", &flow.hazards_not_judged)?;
         map.serialize_entry("reference", &flow::reference(scenario, flow))?;
         map.end()
     }

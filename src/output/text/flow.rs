@@ -1,10 +1,12 @@
 //! The flow table, and what is read off it.
 
+use rustc_hash::{FxHashMap, FxHashSet};
+
 use super::paper::{Paper, Table, Tone};
 use super::steps::state;
 use crate::circuit::NetId;
 use crate::flow::{
-    Beyond, Choice, Compared, Contained, Flow, Hazard, Reached, Reading, StateNumber, Transition, TransitionRef,
+    Beyond, Cause, Choice, Compared, Contained, Flow, Hazard, Reached, Reading, StateNumber, Transition, TransitionRef,
 };
 use crate::logic::{Bits, State};
 use crate::output::{flow_words, words};
@@ -12,8 +14,10 @@ use crate::review::StatesReport;
 use crate::scenario::Scenario;
 use crate::statics::Race;
 
+/// Most notes of the flow table.
+const NOTES: usize = 3;
 /// Most rows of the flow table.
-const ROWS: usize = 14;
+const ROWS: usize = 18;
 /// Most nets of one column of digits.
 const DIGITS: usize = 12;
 /// Most names of nets in a list.
@@ -24,6 +28,8 @@ const LISTED: usize = 4;
 const GAPS: usize = 6;
 /// Most states or groups in a list.
 const STATES: usize = 8;
+/// Most names of nets in the short form.
+const SHORT: usize = 4;
 const GROUPS: usize = 3;
 
 /// Inputs, state variables, and outputs that are neither.
@@ -83,6 +89,10 @@ pub(super) fn table(paper: &mut Paper, scenario: &Scenario, report: &StatesRepor
     if all.steps_truncated {
         paper.say(2, Tone::Unsure, "A limit cut the list of steps.");
     }
+    for note in all.notes.iter().take(NOTES) {
+        paper.say(2, Tone::Plain, &words::sentence(note));
+    }
+    super::more(paper, all.notes.len().saturating_sub(NOTES), "states.json");
     shown
 }
 
@@ -154,7 +164,11 @@ pub(super) fn dynamics(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     let harmless = is(Race::NonCritical);
     match (critical.is_empty(), harmless) {
         (true, 0) if endless.is_empty() && unknown.is_empty() => {
-            paper.item(Tone::Plain, "No race and no oscillation, whatever the delays.");
+            let exact = all().all(|it| matches!(it.to, Reached::Exact { .. }));
+            let cut =
+                if flow.table.states_truncated || flow.table.steps_truncated { ", as far as looked at" } else { "" };
+            let what = if exact { "No race and no oscillation" } else { "Every change has one outcome" };
+            paper.item(Tone::Plain, &format!("{what}, whatever the delays{cut}."));
         }
         (_, 0) => {}
         (_, many) => {
@@ -176,38 +190,92 @@ pub(super) fn dynamics(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
 
 /// Transitions without those that repeat an earlier one under another label.
 fn distinct<'a>(all: impl Iterator<Item = &'a Transition>) -> Vec<&'a Transition> {
-    let mut seen = rustc_hash::FxHashSet::default();
+    let mut seen = FxHashSet::default();
     all.filter(|it| seen.insert((it.from, &it.change.set))).collect()
+}
+
+/// Hazards of one net that one sentence tells: alike in shape, cause and cure.
+struct Group<'a> {
+    first: &'a Hazard,
+    /// The changes that have it: a step that changes one input is in the table of single inputs as well.
+    changes: FxHashSet<&'a [(NetId, bool)]>,
+}
+
+/// Groups in the order of their first hazards: those of steps first.
+fn groups(flow: &Flow) -> Vec<Group<'_>> {
+    let mut index: FxHashMap<_, usize> = FxHashMap::default();
+    let mut groups: Vec<Group<'_>> = Vec::new();
+    for hazard in &flow.hazards {
+        let cure = hazard.cure.as_ref().map(|cure| &cure.expression);
+        let group = *index.entry((hazard.net, hazard.shape, hazard.cause, hazard.built, cure)).or_insert(groups.len());
+        if group == groups.len() {
+            groups.push(Group { first: hazard, changes: FxHashSet::default() });
+        }
+        groups[group].changes.insert(&hazard.change.set);
+    }
+    groups
 }
 
 /// Hazards, those of steps first.
 fn hazards(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
-    for hazard in flow.hazards.iter().take(LISTED) {
-        paper.item(Tone::Unsure, &of_hazard(scenario, flow, hazard));
+    let groups = groups(flow);
+    for group in groups.iter().take(LISTED) {
+        paper.item(Tone::Unsure, &of_hazard(scenario, flow, group));
     }
-    let more = flow.hazards.len().saturating_sub(LISTED);
-    super::more(paper, more, "states.json");
-    if flow.hazards.is_empty() {
-        paper.item(Tone::Plain, "No static or dynamic hazard was found at watched nets or feedback nets.");
+    super::more(paper, groups.len().saturating_sub(LISTED), "states.json");
+    if flow.hazards_truncated {
+        paper.item(Tone::Unsure, "A limit cut the search for hazards: there may be more, or cures that are not told.");
+    }
+    if flow.hazards_not_judged > 0 {
+        let changes = words::many(flow.hazards_not_judged, "change of a net");
+        paper.item(Tone::Unsure, &format!("Not judged for hazards: {changes}; too many inputs move at once."));
+    }
+    if groups.is_empty() && !flow.hazards_truncated && flow.hazards_not_judged == 0 {
+        paper.item(Tone::Plain, "No static or dynamic hazard of watched nets or feedback nets.");
     }
 }
 
-/// `Hazard static-1 (logic) at level: step to the lower gauge (from S1 choose_upper 1→0); cure: …`.
-fn of_hazard(scenario: &Scenario, flow: &Flow, hazard: &Hazard) -> String {
-    let (shape, cause) = (hazard.shape.word(), hazard.cause.word());
-    let mut text = format!("Hazard {shape} ({cause}) at {}: ", words::net(scenario, hazard.net));
+/// `Static-1 hazard (logic) of level: step to the lower gauge (from S1 choose_upper 1→0), and 1 more change; cure: …`.
+fn of_hazard(scenario: &Scenario, flow: &Flow, group: &Group<'_>) -> String {
+    let hazard = group.first;
+    let (net, cause) = (words::net(scenario, hazard.net), hazard.cause.word());
+    let mut text = words::sentence(hazard.shape.word());
+    text.truncate(text.len() - 1);
+    text += &format!(" hazard ({cause}) of {net}: ");
     let from = flow_words::from(scenario, &flow.table, hazard.from, &hazard.change);
     text += &match words::step(scenario, hazard.moment) {
-        Some(step) => format!("step {step}, {from}"),
+        Some(step) => format!("step {step} ({from})"),
         None => from,
     };
     if hazard.states > 1 {
-        text += &format!(" and {}", words::many(hazard.states - 1, "more state"));
+        text += &format!(", and {}", words::many(hazard.states - 1, "more state"));
     }
-    if let Some(cure) = &hazard.cure {
-        text += &format!("; cure: {} = {}", words::net(scenario, hazard.net), cure.expression);
+    if group.changes.len() > 1 {
+        text += &format!(", and {}", words::many(group.changes.len() as u64 - 1, "more change"));
+    }
+    if hazard.built {
+        text += "; only if its expressions are built of several gates";
+    }
+    match (&hazard.cure, hazard.cause) {
+        (Some(cure), _) => text += &format!("; cure: {net} = {}", cure.expression),
+        (None, Cause::Function) => text += "; no choice of gates cures it",
+        (None, Cause::Logic) => {}
     }
     text + "."
+}
+
+/// Which nets have hazards, in how many changes.
+fn in_short(scenario: &Scenario, flow: &Flow) -> String {
+    let mut nets: Vec<NetId> = flow.hazards.iter().map(|hazard| hazard.net).collect();
+    nets.sort_unstable();
+    nets.dedup();
+    let open = if flow.hazards_truncated || flow.hazards_not_judged > 0 { " (not all judged)" } else { "" };
+    if nets.is_empty() {
+        return format!("no hazard{open}");
+    }
+    let changes: FxHashSet<_> = flow.hazards.iter().map(|hazard| (hazard.net, &hazard.change.set)).collect();
+    let names = words::some_names(&words::nets(scenario, &nets), SHORT);
+    format!("hazards of {names} in {}{open}", words::many(changes.len() as u64, "change"))
 }
 
 fn left(all: usize, told: usize, place: &str) -> String {
@@ -240,8 +308,7 @@ pub(super) fn reading(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     if missing.is_empty() {
         text += ".";
     } else {
-        let gap =
-            |(number, input): &(StateNumber, NetId)| flow_words::single(scenario, &flow.table, *number, *input);
+        let gap = |(number, input): &(StateNumber, NetId)| flow_words::single(scenario, &flow.table, *number, *input);
         let told: Vec<String> = missing.iter().take(GAPS).map(gap).collect();
         text += &format!("; not: {}{}.", told.join(", "), left(missing.len(), GAPS, "thin arrows of states.svg"));
     }
@@ -361,7 +428,7 @@ pub(super) fn reference(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
 }
 
 /// What a review says of the delay-free view, in two or three lines.
-pub(super) fn short(paper: &mut Paper, flow: &Flow) {
+pub(super) fn short(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     let table = &flow.table;
     if table.states.is_empty() {
         return;
@@ -370,12 +437,11 @@ pub(super) fn short(paper: &mut Paper, flow: &Flow) {
     let all = || table.steps.iter().chain(&table.single);
     let critical = distinct(all().filter(|it| flow_words::race(&it.to) == Some(Race::Critical))).len();
     let essential = distinct(all().filter(|it| it.essential == Some(true))).len();
-    let hazards = flow.hazards.len();
     let text = format!(
         "{}. On the table: {}, {}, {}.",
         covered(flow),
         words::many(critical as u64, "critical race"),
-        words::many(hazards as u64, "hazard"),
+        in_short(scenario, flow),
         words::many(essential as u64, "essential hazard"),
     );
     paper.say(2, Tone::Plain, &text);

@@ -16,7 +16,7 @@ pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     verdict(&mut paper, &review.verdict);
     body(&mut paper, page, scenario, &review.asked, &review.sweep);
-    flow::short(&mut paper, &review.states.flow);
+    flow::short(&mut paper, scenario, &review.states.flow);
     notes::notes(&mut paper, scenario);
     paper.finish()
 }
