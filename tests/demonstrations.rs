@@ -11,12 +11,14 @@ use stillgate::review::{self, Call};
 fn every_demonstration_shows_what_it_says() {
     let table = [
         ("interlock", Call::Broken, Some(Kind::Glitch)),
+        ("interlock-walk", Call::Broken, Some(Kind::Glitch)),
         ("selector", Call::Broken, Some(Kind::Glitch)),
         ("selector-cured", Call::NoFailureFound, None),
         ("divider", Call::NoFailureFound, None),
         ("horn", Call::NoFailureFound, Some(Kind::Oscillation)),
         ("handshake", Call::NoFailureFound, None),
         ("sequencer", Call::Broken, Some(Kind::Expect)),
+        ("stepper", Call::Broken, Some(Kind::Expect)),
         ("power-up", Call::NoFailureFound, Some(Kind::CriticalRace)),
         ("contactors", Call::Broken, Some(Kind::Never)),
         ("clock-switch", Call::Broken, Some(Kind::MinPulse)),

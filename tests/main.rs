@@ -3,13 +3,16 @@
 #![allow(clippy::unwrap_used)] // a helper that fails is a test that fails
 
 mod commands;
+mod coverage;
 mod demonstrations;
 mod draws;
 mod engine_agrees;
 mod engine_properties;
+mod essential;
 mod golden;
 mod judges_agree;
 mod malformed;
+mod outcomes_agree;
 mod outside;
 mod support;
 mod sweeps_agree;

@@ -5,9 +5,8 @@ use std::collections::BTreeMap;
 use rustc_hash::FxHashMap;
 
 use super::classes::{Ways, refine};
-use super::components::components;
 use super::{Automaton, FlowTable, Reached, Reading, StateNumber};
-use crate::circuit::NetId;
+use crate::circuit::{NetId, strong_components};
 use crate::logic::Bits;
 use crate::scenario::Scenario;
 
@@ -96,8 +95,8 @@ fn dead_ends(table: &FlowTable, graph: &Graph, variables: &[NetId]) -> Vec<Vec<S
     }
     let targets: Vec<Vec<u32>> = graph.ways.iter().map(|ways| ways.iter().flatten().copied().collect()).collect();
     let mut group_of = vec![0; targets.len()];
-    let groups = components(&targets);
-    for (number, group) in groups.iter().enumerate() {
+    let strong = strong_components(targets.len(), |state| &targets[state as usize]);
+    for (number, group) in strong.groups().enumerate() {
         for member in group {
             group_of[*member as usize] = number;
         }
@@ -112,11 +111,11 @@ fn dead_ends(table: &FlowTable, graph: &Graph, variables: &[NetId]) -> Vec<Vec<S
                 && state(*member) == first
         })
     };
-    let mut ends: Vec<Vec<StateNumber>> = groups
-        .iter()
+    let mut ends: Vec<Vec<StateNumber>> = strong
+        .groups()
         .enumerate()
         .filter(|(number, group)| is_dead_end(*number, group))
-        .map(|(_, group)| group.clone())
+        .map(|(_, group)| group.to_vec())
         .collect();
     ends.sort_unstable();
     ends

@@ -1,21 +1,26 @@
 //! What may follow a change, with stable states by number: each asked for once, and checked.
 //!
 //! The multiple-winner method (general multiple winner, Brzozowski and Seger) holds for inertial gates, without wires
-//! that have delays of their own, and for inputs that change once. In all other cases the outcome is the bound of ternary
-//! simulation (Eichelberger 1965), which holds for any filter, for wires and for contacts that bounce.
+//! that have delays of their own, and for inputs that change once. In all other cases, and where it takes more than its
+//! budget, the outcome is the bound of ternary simulation (Eichelberger 1965), which holds for any filter, for wires and
+//! for contacts that bounce.
 
 use rustc_hash::FxHashMap;
 
+use super::follow::{contradiction, winners_are_valid};
 use super::{FlowError, Reached, StateNumber};
 use crate::circuit::{Circuit, NetId};
 use crate::control::Control;
-use crate::delay::Filter;
 use crate::logic::{Bits, State, Value};
 use crate::scenario::Scenario;
-use crate::statics::{Change, GaveUp, Outcome, is_stable, outcome, stable_states, ternary};
+use crate::statics::{
+    Change, GaveUp, Next, Outcome, bound, bound_restless, fundamental, outcome_of_many, stable_states, ternary,
+};
 
 /// Most nodes of the decision diagram that lists the stable states that agree with a bound.
 const NODES: usize = 1 << 13;
+/// Most that the multiple-winner method may take for one outcome, in evaluations of gates and firings.
+const EFFORT_OF_ONE: usize = 1 << 20;
 
 /// Stable states by number, and what may follow each change that was asked for.
 pub(super) struct Outcomes<'a> {
@@ -29,8 +34,14 @@ pub(super) struct Outcomes<'a> {
     numbers: FxHashMap<Bits, StateNumber>,
     asked: FxHashMap<Question, u32>,
     found: Vec<Found>,
+    /// What follows the change of an input where only the feedback nets take time.
+    nexts: FxHashMap<(Bits, NetId), Next>,
     /// Values of nets computed so far, about: a measure of the work done.
     pub work: usize,
+    /// What is left for the multiple-winner method, in evaluations of gates and firings.
+    effort: usize,
+    /// Outcomes for which that was not enough.
+    pub too_much: usize,
 }
 
 /// From which state, the inputs that move, and whether they bounce.
@@ -56,19 +67,21 @@ impl Found {
 }
 
 impl<'a> Outcomes<'a> {
-    pub fn of(scenario: &'a Scenario, agreeing: usize, control: &'a Control) -> Outcomes<'a> {
+    pub fn of(scenario: &'a Scenario, agreeing: usize, effort: usize, control: &'a Control) -> Outcomes<'a> {
         let circuit = &*scenario.circuit;
-        let inertial = scenario.delays.filter.iter().all(|filter| *filter == Filter::Inertial);
         Outcomes {
             circuit,
             control,
-            exact: inertial && circuit.wire_count() == 0,
+            exact: winners_are_valid(scenario),
             agreeing,
             states: Vec::new(),
             numbers: FxHashMap::default(),
             asked: FxHashMap::default(),
             found: Vec::new(),
+            nexts: FxHashMap::default(),
             work: 0,
+            effort,
+            too_much: 0,
         }
     }
 
@@ -82,12 +95,12 @@ impl<'a> Outcomes<'a> {
     }
 
     /// Finds out what may follow a change.
-    pub fn after(&mut self, from: StateNumber, change: &Change, bounced: bool) -> Result<Answer, FlowError> {
-        let asked = self.question(from, change, bounced);
+    pub fn after(&mut self, from: StateNumber, change: &Change, restless: bool) -> Result<Answer, FlowError> {
+        let asked = self.question(from, change, restless);
         if let Some(at) = self.asked.get(&asked) {
             return Ok(Answer(*at));
         }
-        let found = self.find(from, &asked.1, bounced)?;
+        let found = self.find(from, &asked.1, restless)?;
         let at = self.found.len() as u32;
         self.found.push(found);
         self.asked.insert(asked, at);
@@ -113,34 +126,40 @@ impl<'a> Outcomes<'a> {
         }
     }
 
-    /// What may follow the change of one input, if that was asked before.
-    fn known_after(&self, from: StateNumber, input: NetId) -> Option<&Reached> {
-        let change = Change::of_one(&self.states[from as usize], input);
-        let at = self.asked.get(&(from, change, false))?;
-        Some(&self.found[*at as usize].to)
-    }
-
     /// Of a change only what moves counts; one input alone cannot come apart.
-    fn question(&self, from: StateNumber, change: &Change, bounced: bool) -> Question {
+    fn question(&self, from: StateNumber, change: &Change, restless: bool) -> Question {
         let set: Vec<(NetId, bool)> = change.moving(&self.states[from as usize]).collect();
         let apart = change.apart && set.len() > 1;
         // contacts that have moved already may bounce all the same
-        if bounced {
+        if restless {
             return (from, change.clone(), true);
         }
         (from, Change { set, apart }, false)
     }
 
-    fn find(&mut self, from: StateNumber, change: &Change, bounced: bool) -> Result<Found, FlowError> {
-        let known = State::known(self.states[from as usize].clone());
-        let bound = self.spread(&known, change, bounced);
-        let outcome = match self.exact && !bounced {
-            true => outcome(self.circuit, &known.ones, change, self.control).map_err(|_| FlowError::Cancelled)?,
-            false => Outcome::Bound(bound.clone()),
+    fn find(&mut self, from: StateNumber, change: &Change, restless: bool) -> Result<Found, FlowError> {
+        let before = &self.states[from as usize];
+        self.work += self.circuit.net_count();
+        let (outcome, bound) = if restless || !self.exact {
+            let bound = match restless {
+                true => bound_restless(self.circuit, before, change).1,
+                false => bound(self.circuit, before, change).1,
+            };
+            (Outcome::Bound(bound.clone()), bound)
+        } else {
+            let mut left = self.effort.min(EFFORT_OF_ONE);
+            let given = left;
+            let found = outcome_of_many(self.circuit, before, change, &mut left, self.control)
+                .map_err(|_: GaveUp| FlowError::Cancelled)?;
+            self.effort -= given - left;
+            self.too_much += usize::from(matches!(found.0, Outcome::Bound(_)));
+            found
         };
+        if let Some(what) = contradiction(self.circuit, &outcome, &bound) {
+            return Err(self.contradiction(from, change, &what));
+        }
         let to = match outcome {
             Outcome::Exact { states, cycles, race } => {
-                self.check(from, change, &states, cycles, &bound)?;
                 let mut states: Vec<StateNumber> = states.into_iter().map(|state| self.number(state)).collect();
                 states.sort_unstable();
                 Reached::Exact { states, cycles, race }
@@ -180,11 +199,11 @@ impl<'a> Outcomes<'a> {
     }
 
     /// What is known after a change from a state of which only part may be known: see [`crate::statics::bound`].
-    pub fn spread(&mut self, known: &State, change: &Change, bounced: bool) -> State {
+    pub fn spread(&mut self, known: &State, change: &Change, restless: bool) -> State {
         self.work += self.circuit.net_count();
         let mut state = known.clone();
         for (net, bit) in &change.set {
-            if bounced || state.get(net.index()).known() != Some(*bit) {
+            if restless || state.get(net.index()).known() != Some(*bit) {
                 state.set(net.index(), Value::X);
             }
         }
@@ -194,47 +213,6 @@ impl<'a> Outcomes<'a> {
         }
         ternary::settle(self.circuit, &mut state);
         state
-    }
-
-    /// Ternary simulation is an upper bound of the multiple-winner method; what it knows must be so.
-    fn check(
-        &self,
-        from: StateNumber,
-        change: &Change,
-        states: &[Bits],
-        cycles: u64,
-        bound: &State,
-    ) -> Result<(), FlowError> {
-        for state in states {
-            let differs =
-                |net: &NetId| bound.get(net.index()).known().is_some_and(|known| known != state.get(net.index()));
-            if let Some(net) = self.circuit.nets().find(differs) {
-                let what = format!(
-                    "`{}` may come to rest at {}, ternary simulation rules that out",
-                    self.circuit.name(net),
-                    u8::from(state.get(net.index()))
-                );
-                return Err(self.contradiction(from, change, &what));
-            }
-            if !is_stable(self.circuit, &State::known(state.clone())) {
-                return Err(self.contradiction(
-                    from,
-                    change,
-                    "the multiple-winner method ends in a state that is not stable",
-                ));
-            }
-        }
-        if cycles > 0 && !bound.has_unknown() {
-            return Err(self.contradiction(
-                from,
-                change,
-                "the circuit may oscillate, ternary simulation rules that out",
-            ));
-        }
-        if cycles == 0 && states.is_empty() {
-            return Err(self.contradiction(from, change, "the circuit comes to no rest and does not oscillate either"));
-        }
-        Ok(())
     }
 
     /// Two methods contradict each other: a defect of the program.
@@ -251,21 +229,36 @@ impl<'a> Outcomes<'a> {
         FlowError::Contradiction(format!("from the stable state {{ {before} }}, after {{ {after} }}: {what}"))
     }
 
-    /// Unger's test for an essential hazard (Unger 1959): does one change of the input lead to another state than three,
-    /// there, back and there again? Outcomes that are not unique have none. `None` where the method does not say, or was
-    /// not asked.
-    pub fn essential(&self, from: StateNumber, input: NetId) -> Option<bool> {
-        let mut at = from;
+    /// Unger's test for an essential hazard (Unger 1959) in the flow table in which only the feedback nets take time: does
+    /// one change of the input lead to another state than three, there, back and there again? Outcomes that are not unique
+    /// have none. `None` where that takes more than its effort.
+    pub fn essential(&mut self, from: StateNumber, input: NetId) -> Result<Option<bool>, FlowError> {
+        let mut at = self.states[from as usize].clone();
         let mut first = None;
         for _ in 0..3 {
-            let to = self.known_after(at, input)?;
-            at = match (to.only(), to) {
-                (Some(state), _) => state,
-                (None, Reached::Exact { .. }) => return Some(false),
-                (None, Reached::Bound { .. }) => return None,
+            at = match self.next(at, input)? {
+                Next::One(state) => state,
+                Next::Several => return Ok(Some(false)),
+                Next::Unknown => return Ok(None),
             };
-            first = first.or(Some(at));
+            first.get_or_insert_with(|| at.clone());
         }
-        Some(first != Some(at))
+        Ok(Some(first != Some(at)))
+    }
+
+    /// What follows the change of one input where only the feedback nets take time.
+    fn next(&mut self, from: Bits, input: NetId) -> Result<Next, FlowError> {
+        let asked = (from, input);
+        if let Some(known) = self.nexts.get(&asked) {
+            return Ok(known.clone());
+        }
+        let change = Change::of_one(&asked.0, input);
+        let mut left = self.effort.min(EFFORT_OF_ONE);
+        let given = left;
+        let next = fundamental(self.circuit, &asked.0, &change, &mut left, self.control)
+            .map_err(|_: GaveUp| FlowError::Cancelled)?;
+        self.effort -= given - left;
+        self.nexts.insert(asked, next.clone());
+        Ok(next)
     }
 }

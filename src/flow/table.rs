@@ -20,6 +20,8 @@ pub(super) struct Limits {
     pub transitions: usize,
     /// Most values of nets that are computed, about.
     pub values: usize,
+    /// What the multiple-winner method may take in all, in evaluations of gates and firings.
+    pub effort: usize,
     /// Most stable states listed for one ternary bound, and for one input vector.
     pub agreeing: usize,
     /// Most input vectors looked at for states that cannot be reached.
@@ -30,7 +32,7 @@ pub(super) struct Limits {
 
 impl Default for Limits {
     fn default() -> Limits {
-        Limits { transitions: 1 << 13, values: 1 << 22, agreeing: 64, vectors: 1024, nodes: 1 << 18 }
+        Limits { transitions: 1 << 13, values: 1 << 22, effort: 1 << 24, agreeing: 64, vectors: 1024, nodes: 1 << 18 }
     }
 }
 
@@ -45,7 +47,7 @@ pub(super) fn table(scenario: &Scenario, limits: Limits, control: &Control) -> R
         circuit: &scenario.circuit,
         control,
         limits,
-        outcomes: Outcomes::of(scenario, limits.agreeing, control),
+        outcomes: Outcomes::of(scenario, limits.agreeing, limits.effort, control),
         table: FlowTable { notes: notes(scenario), ..FlowTable::default() },
         explored: 0,
     };
@@ -155,7 +157,7 @@ impl Making<'_> {
         let mut rests = walk.rests;
         let mut known = None;
         for from in &walk.at {
-            let answer = self.outcomes.after(*from, &group.change, group.bounced)?;
+            let answer = self.outcomes.after(*from, &group.change, group.restless)?;
             let to = self.outcomes.reached(answer).clone();
             rests &= self.outcomes.rests(answer);
             if walk.is_sure() {
@@ -172,7 +174,7 @@ impl Making<'_> {
                 sure: walk.is_sure(),
             });
         }
-        let mut known = known.unwrap_or_else(|| self.outcomes.spread(&walk.known, &group.change, group.bounced));
+        let mut known = known.unwrap_or_else(|| self.outcomes.spread(&walk.known, &group.change, group.restless));
         let mut at: Vec<StateNumber> = next.into_iter().collect();
         if !known.has_unknown() {
             let state = self.outcomes.number(known.ones.clone());
@@ -248,14 +250,23 @@ impl Making<'_> {
     }
 
     fn finish(mut self, reachable: usize, complete: bool) -> Result<FlowTable, FlowError> {
-        let outcomes = &self.outcomes;
         for transition in self.table.steps.iter_mut().chain(&mut self.table.single) {
-            let before = &outcomes.states[transition.from as usize];
+            let before = &self.outcomes.states[transition.from as usize];
             if let (Reached::Exact { .. }, Some(input)) = (&transition.to, transition.change.single(before)) {
-                transition.essential = outcomes.essential(transition.from, input);
+                if self.control.cancelled() {
+                    return Err(FlowError::Cancelled);
+                }
+                transition.essential = self.outcomes.essential(transition.from, input)?;
             }
         }
         self.table.states_truncated |= !complete;
+        if self.outcomes.too_much > 0 {
+            let count = self.outcomes.too_much;
+            let outcomes = if count == 1 { "1 outcome takes".into() } else { format!("{count} outcomes take") };
+            self.table.notes.push(format!(
+                "{outcomes} more than the budget of the multiple-winner method; ternary simulation bounds what may follow"
+            ));
+        }
         let explored = self.explored;
         let states = std::mem::take(&mut self.outcomes.states);
         self.table.states = states

@@ -1,7 +1,8 @@
 //! What may follow a change of inputs, whatever the delays.
 
 use super::change::Change;
-use super::winners::{Effort, winners};
+use super::explore::Effort;
+use super::winners::winners;
 use super::{GaveUp, ternary};
 use crate::circuit::{Circuit, NetId};
 use crate::control::Control;
@@ -113,23 +114,39 @@ fn ternary_of(
 ///
 /// Errors: only [`GaveUp::Cancelled`]. Panics if the state has fewer nets than the circuit.
 pub fn outcome(circuit: &Circuit, from: &Bits, change: &Change, control: &Control) -> Result<Outcome, GaveUp> {
-    outcome_within(circuit, from, change, Effort::DEFAULT, control)
+    let mut all = usize::MAX;
+    Ok(outcome_within(circuit, from, change, Effort::DEFAULT, &mut all, control)?.0)
 }
 
-/// As [`outcome`], with another effort.
+/// As [`outcome`], for many changes that share a budget, with the ternary bound beside it. What the exact method takes, in
+/// evaluations of gates and firings, is taken from `left`; where that is not enough there is only the bound.
+///
+/// Errors: only [`GaveUp::Cancelled`]. Panics if the state has fewer nets than the circuit.
+pub fn outcome_of_many(
+    circuit: &Circuit,
+    from: &Bits,
+    change: &Change,
+    left: &mut usize,
+    control: &Control,
+) -> Result<(Outcome, State), GaveUp> {
+    outcome_within(circuit, from, change, Effort::DEFAULT, left, control)
+}
+
+/// As [`outcome_of_many`], with another effort.
 fn outcome_within(
     circuit: &Circuit,
     from: &Bits,
     change: &Change,
     effort: Effort,
+    left: &mut usize,
     control: &Control,
-) -> Result<Outcome, GaveUp> {
+) -> Result<(Outcome, State), GaveUp> {
     if control.cancelled() {
         return Err(GaveUp::Cancelled);
     }
     let (spread, settled) = bound(circuit, from, change);
-    let exact = winners(circuit, from, change, &spread, effort, control)?;
-    Ok(exact.unwrap_or(Outcome::Bound(settled)))
+    let exact = winners(circuit, from, change, &spread, effort, left, control)?;
+    Ok((exact.unwrap_or_else(|| Outcome::Bound(settled.clone())), settled))
 }
 
 #[cfg(test)]
@@ -207,10 +224,19 @@ mod tests {
         let release = change(&[(0, 0), (1, 0)]);
         let small = Effort { states: 3, ..Effort::DEFAULT };
         let control = Control::default();
-        let outcome = outcome_within(&latch, &bits("1100"), &release, small, &control).unwrap();
-        assert_eq!(outcome, Outcome::Bound(bound(&latch, &bits("1100"), &release).1));
+        let bound = bound(&latch, &bits("1100"), &release).1;
+        let mut left = 1000;
+        let within = |effort, left: &mut usize| outcome_within(&latch, &bits("1100"), &release, effort, left, &control);
+        assert_eq!(within(small, &mut left), Ok((Outcome::Bound(bound.clone()), bound.clone())));
+        // a common budget goes down by what is used, and is left at nothing where it is not enough
+        let before = left;
+        assert!(matches!(within(Effort::DEFAULT, &mut left), Ok((Outcome::Exact { .. }, _))));
+        let used = before - left;
+        assert!((8..100).contains(&used), "four states of two gates each, and their firings: {used}");
+        let mut few = used - 1;
+        assert_eq!(within(Effort::DEFAULT, &mut few), Ok((Outcome::Bound(bound.clone()), bound)));
         control.cancel.store(true, std::sync::atomic::Ordering::Relaxed);
-        let stopped = outcome_within(&latch, &bits("1100"), &release, small, &control);
+        let stopped = within(small, &mut left);
         assert_eq!(stopped, Err(GaveUp::Cancelled));
     }
 }
