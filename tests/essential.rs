@@ -191,3 +191,13 @@ fn each_change_of_the_table_is_an_essential_hazard() {
     let scenario = reader::read(text, "table.toml").unwrap_or_else(|faults| panic!("{faults}")).scenario;
     assert_eq!(flagged(&reviewed(&scenario)), 4);
 }
+
+#[test]
+fn the_flag_stays_whatever_the_delays() {
+    // it belongs to the flow table: neither a fast inverter nor a slow way back takes it away
+    for (inverter, back) in [("[4, 12, 34]", None), ("[4, 8, 14]", None), ("[4, 12, 34]", Some("[20, 25, 32]"))] {
+        let mut scenario = scenario(inverter, back, "uniform");
+        scenario.plan.samples = 10;
+        assert_eq!(flagged(&reviewed(&scenario)), 4, "inverter {inverter}, way back {back:?}");
+    }
+}
