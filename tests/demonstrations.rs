@@ -22,6 +22,7 @@ fn every_demonstration_shows_what_it_says() {
         ("handshake", Call::NoFailureFound, None),
         ("sequencer", Call::Broken, Some(Kind::Expect)),
         ("permit", Call::Broken, Some(Kind::NotInReference)),
+        ("stepper", Call::Broken, Some(Kind::Expect)),
         ("power-up", Call::NoFailureFound, Some(Kind::CriticalRace)),
         ("contactors", Call::Broken, Some(Kind::Never)),
         ("clock-switch", Call::Broken, Some(Kind::MinPulse)),

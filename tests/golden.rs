@@ -15,7 +15,7 @@ use stillgate::findings::{Asked, Shape};
 use stillgate::instance::Which;
 use stillgate::output::text::{self, Page, Style};
 use stillgate::output::waves::{self, Picture};
-use stillgate::output::{bundle, charts, json, tables};
+use stillgate::output::{bundle, charts, flow_tables, json, tables};
 use stillgate::review::RunReport;
 use stillgate::scenario::Scenario;
 
@@ -234,7 +234,9 @@ fn the_files_of_a_review() {
         "outcomes.csv",
         "findings.csv",
         "rules.csv",
+        "states.svg",
         "states.csv",
+        "transitions.csv",
     ];
     assert_eq!(names, wanted);
     assert!(bundle.notes[0].starts_with("3 of 6 findings have a picture"), "{:?}", bundle.notes);
@@ -280,7 +282,7 @@ fn lists() {
     golden("outcomes.csv", &tables::outcomes(&scenario, &review.sweep));
     golden("findings.csv", &tables::findings(&scenario, &review.asked, &review.sweep));
     golden("rules.csv", &tables::rules(&scenario, &review.sweep));
-    golden("states.csv", &tables::states(&scenario, &review.states));
+    golden("states.csv", &flow_tables::states(&scenario, &review.states));
 }
 
 #[test]

@@ -8,6 +8,7 @@ mod demonstrations;
 mod draws;
 mod engine_agrees;
 mod engine_properties;
+mod essential;
 mod golden;
 mod judges_agree;
 mod malformed;

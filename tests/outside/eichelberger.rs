@@ -3,7 +3,7 @@
 
 use std::collections::BTreeSet;
 
-use stillgate::circuit::{Circuit, Expr, Function, NetId};
+use stillgate::circuit::{Circuit, Expr, Function};
 use stillgate::control::Control;
 use stillgate::logic::{Bits, State};
 use stillgate::statics::{Change, Outcome, Race, StateSet, bound, outcome};
