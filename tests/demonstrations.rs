@@ -18,6 +18,7 @@ fn every_demonstration_shows_what_it_says() {
         ("horn", Call::NoFailureFound, Some(Kind::Oscillation)),
         ("handshake", Call::NoFailureFound, None),
         ("sequencer", Call::Broken, Some(Kind::Expect)),
+        ("stepper", Call::Broken, Some(Kind::Expect)),
         ("power-up", Call::NoFailureFound, Some(Kind::CriticalRace)),
         ("contactors", Call::Broken, Some(Kind::Never)),
         ("clock-switch", Call::Broken, Some(Kind::MinPulse)),

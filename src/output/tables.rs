@@ -2,6 +2,7 @@
 
 use crate::findings::{Asked, Reason};
 use crate::output::words::{self, six};
+use crate::review::departure_words;
 use crate::scenario::Scenario;
 use crate::sweep::{SweepReport, Worst};
 use crate::time::Decimal;
@@ -55,7 +56,8 @@ pub fn outcomes(scenario: &Scenario, report: &SweepReport) -> String {
 }
 
 /// Findings, worst first, with the keys of the JSON as columns. `worst` has two columns, one for times and one for shares
-/// of a delay.
+/// of a delay. What departed from the reference has the states of its first sample, all nets, and the compared nets that
+/// the reference allows.
 pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
     let unit = scenario.unit;
     write(|to| {
@@ -80,6 +82,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
             "tie",
             "sample",
             "worst_sample",
+            "reference: before",
+            "reference: reached",
+            "reference: allowed",
         ])?;
         for finding in &report.findings {
             let named = words::subject(scenario, asked, &finding.subject);
@@ -89,6 +94,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
                 Some(Worst::Share(share)) => (String::new(), six(share).to_string()),
                 None => (String::new(), String::new()),
             };
+            let against = finding.against.as_ref().map(|it| departure_words(scenario, it, true));
+            let (before, reached, allowed) =
+                against.map_or_else(Default::default, |it| (it.before.unwrap_or_default(), it.reached, it.allowed));
             to.write_record([
                 named.kind.to_string(),
                 name(named.shape),
@@ -110,6 +118,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
                 name(finding.tie.map(words::tie)),
                 or_empty(finding.sample),
                 or_empty(finding.worst_sample),
+                before,
+                reached,
+                allowed,
             ])?;
         }
         Ok(())

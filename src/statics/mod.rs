@@ -10,6 +10,7 @@ mod change;
 mod diagram;
 mod fewest;
 mod functions;
+mod inclusion;
 mod multiplicity;
 mod order;
 mod outcome;

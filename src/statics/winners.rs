@@ -386,8 +386,8 @@ fn explore(
             let most = most.entry(component).or_insert(0);
             *most = (*most).max(count.min(2));
         }
-        let Some(sets) = firing_sets(&now, &ties, effort.together) else { return Ok(None) };
-        let cost = n + sets.len();
+        let mut cost = n;
+        let Some(sets) = firing_sets(&now, &ties, effort.together, &mut cost) else { return Ok(None) };
         if firings.len() + sets.len() > effort.firings || cost > *left {
             *left = left.saturating_sub(cost);
             return Ok(None);
@@ -447,10 +447,11 @@ fn lasts(group: &[u32], states: &[Bits], excited: &[Bits]) -> bool {
 }
 
 /// The sets of excited nodes that need firing: each alone, and those of several of which no part can go first without
-/// perhaps calming the rest. `None`: too many are excited together.
-fn firing_sets(excited: &Bits, ties: &[Vec<u32>], together: u32) -> Option<Vec<Vec<u32>>> {
+/// perhaps calming the rest. `None`: too many are excited together. The sets looked at are added to `cost`.
+fn firing_sets(excited: &Bits, ties: &[Vec<u32>], together: u32, cost: &mut usize) -> Option<Vec<Vec<u32>>> {
     let nodes: Vec<u32> = excited.ones().map(|at| at as u32).collect();
     let mut sets: Vec<Vec<u32>> = nodes.iter().map(|node| vec![*node]).collect();
+    *cost += sets.len();
     if nodes.len() < 2 {
         return Some(sets);
     }
@@ -463,6 +464,7 @@ fn firing_sets(excited: &Bits, ties: &[Vec<u32>], together: u32) -> Option<Vec<V
         if group.len() > together as usize {
             return None;
         }
+        *cost += 1 << group.len();
         let within: FxHashMap<u32, u32> = group.iter().enumerate().map(|(i, node)| (*node, i as u32)).collect();
         let (mut reads, mut read_by) = (vec![0u32; group.len()], vec![0u32; group.len()]);
         for (reader, node) in group.iter().enumerate() {

@@ -79,6 +79,7 @@ pub fn finding(kind: Kind, net: Option<NetId>, moment: u32, count: u64) -> Findi
         interval: Some((0.9 * count as f64 / 10_000.0, 1.1 * count as f64 / 10_000.0)),
         boards: None,
         worst: None,
+        against: None,
         tie: None,
         sample: Some(17),
         worst_sample: Some(8123),
