@@ -84,8 +84,9 @@ pub struct Transition {
     pub change: Change,
     /// What may follow.
     pub to: Reached,
-    /// Does Unger's test find an essential hazard: does one change of the input lead to another state than three? `None`
-    /// where the method does not say, a limit cut, or not just one input changes.
+    /// Does Unger's test find an essential hazard: in the flow table in which only the feedback nets take time, does one
+    /// change of the input lead to another state than three, each outcome unique? `None` where only a bound is known, the
+    /// test takes more than its effort, or not just one input changes.
     pub essential: Option<bool>,
     /// For steps: is it sure that the step meets this state? Not after power-up, a race, an oscillation or a ternary bound,
     /// until a step leads to one state from all that may be (by ternary simulation, or because each outcome is unique).
