@@ -58,7 +58,7 @@ pub struct Hazards {
 /// The hazards of all transitions of a flow table, of these nets and of all feedback nets. Of the table, only the
 /// states and the changes are used, not what follows them.
 ///
-/// Only gates that may move are looked at, so the time goes with what moves, not with the circuit; after [`MAX_WORK`]
+/// Only gates that may move are looked at, so the time goes with what moves, not with the circuit; after `MAX_WORK`
 /// steps it ends, and the result says so.
 ///
 /// Errors: only [`FlowError::Cancelled`]. Panics if the table is not one of this circuit.
