@@ -321,6 +321,8 @@ fn a_state_that_the_reference_does_not_allow_breaks_it() {
             label = "second"
             {rules}
             set = {{ a = 0 }}
+            [sweep]
+            samples = 200
             [reference]
             [reference.gates]
             out = {{ {wanted} }}
@@ -372,6 +374,8 @@ fn a_race_of_which_the_reference_allows_one_end() {
             set = {{ r = 0, s = 0 }}
             [rules]
             critical_race = "allowed"
+            [sweep]
+            samples = 200
             [reference]
             [reference.gates]
             {wanted}
@@ -409,6 +413,8 @@ fn after_power_up_the_reference_says_where_it_may_rest() {
             qn = {{ nor = ["s", "q"], delay = [4, 7] }}
             [rules]
             critical_race = "allowed"
+            [sweep]
+            samples = 200
             [reference]
             [reference.gates]
             q = {{ {wanted} }}
