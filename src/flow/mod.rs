@@ -84,8 +84,9 @@ pub struct Transition {
     pub change: Change,
     /// What may follow.
     pub to: Reached,
-    /// Does Unger's test find an essential hazard: does one change of the input lead to another state than three? `None`
-    /// where the method does not say, a limit cut, or not just one input changes.
+    /// Does Unger's test find an essential hazard: in the flow table in which only the feedback nets take time, does one
+    /// change of the input lead to another state than three, each outcome unique? `None` where only a bound is known, the
+    /// test takes more than its effort, or not just one input changes.
     pub essential: Option<bool>,
     /// For steps: is it sure that the step meets this state? Not after power-up, a race, an oscillation or a ternary bound,
     /// until a step leads to one state from all that may be (by ternary simulation, or because each outcome is unique).
@@ -204,7 +205,8 @@ pub struct Hazard {
     pub change: Change,
     /// From how many states of the table (for a step: that it can meet) this change has it.
     pub states: u64,
-    /// How to be rid of it from all these states, verified; only for static logic hazards.
+    /// How to be rid of it from all these states, verified; only for static logic hazards, and only if it brings no new
+    /// hazard of the net for any change of the table.
     pub cure: Option<Cure>,
 }
 

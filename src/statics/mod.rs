@@ -8,8 +8,10 @@ mod agreeing;
 pub mod built;
 mod change;
 mod diagram;
+mod explore;
 mod fewest;
 mod functions;
+mod fundamental;
 mod inclusion;
 mod multiplicity;
 mod order;
@@ -27,6 +29,7 @@ mod winners;
 
 pub use agreeing::stable_states;
 pub use change::Change;
+pub use fundamental::{Next, fundamental};
 pub use outcome::{Outcome, Race, bound, bound_restless, outcome, outcome_of_many};
 pub use product::Rows;
 pub use projection::Projection;

@@ -65,7 +65,7 @@ pub(super) fn arrow(map: &Map<'_>, arrow: &Arrow) -> String {
         .map(|place| match place {
             Place::State(number) => flow_words::state(*number),
             Place::Loop => "oscillates".to_string(),
-            Place::Unknown => "known only in part".to_string(),
+            Place::Unknown => "known only by a bound".to_string(),
         })
         .collect();
     let race = if arrow.is_race() { " (critical race)" } else { "" };
@@ -138,6 +138,9 @@ pub(super) fn notes(
     if chosen.single_left_out > 0 {
         let many = words::many(chosen.single_left_out as u64, "change");
         notes.push(format!("Not drawn: {many} of a single input that no step makes (see transitions.csv)."));
+    }
+    if style == Style::Words && chosen.steps.iter().any(|arrow| arrow.moments.len() > 1) {
+        notes.push("A number after a plus: so many further steps make the same change.".to_string());
     }
     if style == Style::Signs && chosen.steps.len() > KEY {
         let left = words::many((chosen.steps.len() - KEY) as u64, "arrow");

@@ -83,7 +83,7 @@ fn draw_block(frame: &Frame, block: &Block) -> Markup {
     let number_of_state = match block.place {
         Place::State(state) => flow_words::state(state),
         Place::Loop => return sign(frame, block, loop_sign, "oscillates"),
-        Place::Unknown => return sign(frame, block, open_sign, "not known"),
+        Place::Unknown => return sign(frame, block, open_sign, "only a bound"),
     };
     let dashes = (!block.is_reachable).then_some(UNREACHABLE);
     let thick = if block.is_start { "2.4" } else { "1.2" };

@@ -61,7 +61,7 @@ pub(super) fn legend(map: &Map<'_>, chosen: &Chosen, grid: &Grid, top: f64, room
             arrows().any(|arrow| arrow.is_race()),
         ),
         (Sample::Loop, "may oscillate for ever", sign(Place::Loop)),
-        (Sample::Unknown, "what follows is known only in part (ternary bound)", sign(Place::Unknown)),
+        (Sample::Unknown, "what follows is known only by a bound (ternary)", sign(Place::Unknown)),
     ];
     let (mut x, mut y) = (MARGIN, top + LINE);
     let mut entries = Vec::new();

@@ -13,7 +13,9 @@ mod frame;
 mod grid;
 mod labels;
 mod lanes;
+mod layout;
 mod legend;
+mod slots;
 #[cfg(test)]
 mod tests;
 mod tracks;

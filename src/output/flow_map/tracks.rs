@@ -61,14 +61,14 @@ fn order(pieces: &[Piece]) -> Vec<usize> {
     let mut order: Vec<usize> = (0..many).collect();
     for _ in 0..ROUNDS {
         let mut better = false;
-        for piece in 0..many {
+        for (piece, before) in cost.iter().enumerate() {
             let at = order.iter().position(|it| *it == piece).expect("every piece is in the order");
             order.remove(at);
             // cost of standing before everything; then what each step to the right changes
-            let mut sum: i64 = order.iter().map(|other| cost[piece][*other] as i64).sum();
+            let mut sum: i64 = order.iter().map(|other| before[*other] as i64).sum();
             let (mut best, mut least, mut now) = (0, sum, sum);
             for (i, other) in order.iter().enumerate() {
-                sum += cost[*other][piece] as i64 - cost[piece][*other] as i64;
+                sum += cost[*other][piece] as i64 - before[*other] as i64;
                 if i + 1 == at {
                     now = sum;
                 }

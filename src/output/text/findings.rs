@@ -11,7 +11,7 @@ use crate::sweep::{Finding, RuleReport, SweepReport, Tie, Worst};
 /// Most findings told in full.
 const FULL: usize = 5;
 /// Most findings listed that break no rule.
-const LISTED: usize = 4;
+const LISTED: usize = 3;
 
 /// What a finding is about: `glitch static-0, open_lower, step together`.
 pub(super) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {

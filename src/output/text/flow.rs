@@ -160,7 +160,7 @@ pub(super) fn dynamics(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     };
     some(paper, Tone::Bad, "Critical races, the delays decide", &critical);
     some(paper, Tone::Bad, "Oscillates for certain", &endless);
-    some(paper, Tone::Unsure, "Known only in part (ternary bound)", &unknown);
+    some(paper, Tone::Unsure, "Known only by a bound (ternary)", &unknown);
     let harmless = is(Race::NonCritical);
     match (critical.is_empty(), harmless) {
         (true, 0) if endless.is_empty() && unknown.is_empty() => {
@@ -227,8 +227,12 @@ fn hazards(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
         paper.item(Tone::Unsure, "A limit cut the search for hazards: there may be more, or cures that are not told.");
     }
     if flow.hazards_not_judged > 0 {
-        let changes = words::many(flow.hazards_not_judged, "change of a net");
-        paper.item(Tone::Unsure, &format!("Not judged for hazards: {changes}; too many inputs move at once."));
+        let times = words::many(flow.hazards_not_judged, "time");
+        let text = format!(
+            "Not judged for hazards: {times} a net and a change of a state; too many inputs move at once, or too many \
+             changes are possible."
+        );
+        paper.item(Tone::Unsure, &text);
     }
     if groups.is_empty() && !flow.hazards_truncated && flow.hazards_not_judged == 0 {
         paper.item(Tone::Plain, "No static or dynamic hazard of watched nets or feedback nets.");
@@ -355,13 +359,13 @@ pub(super) fn contained(compared: &Compared) -> String {
     };
     let count = |number: usize| words::count(number as u64);
     let mut text = format!(
-        "{states}; of {} transitions compared {} lead where the reference does not, {} offer a choice that it does not have",
-        words::count(compared.compared),
+        "{states}. Of {} compared, outcomes that it does not have: {}; choices that it does not have: {}",
+        words::many(compared.compared, "transition"),
         count(compared.beyond.len()),
         count(compared.choices.len()),
     );
     if compared.not_compared > 0 {
-        text += &format!("; {} could not be compared", words::count(compared.not_compared));
+        text += &format!("; not compared: {}", words::count(compared.not_compared));
     }
     text + "."
 }
@@ -433,19 +437,19 @@ pub(super) fn short(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     if table.states.is_empty() {
         return;
     }
-    paper.heading("Without delays (more with the command states; states.svg draws it)");
     let all = || table.steps.iter().chain(&table.single);
     let critical = distinct(all().filter(|it| flow_words::race(&it.to) == Some(Race::Critical))).len();
     let essential = distinct(all().filter(|it| it.essential == Some(true))).len();
     let text = format!(
-        "{}. On the table: {}, {}, {}.",
-        covered(flow),
+        "Without delays (see states): {}. On the table: {}, {}, {}.",
+        covered(flow).replacen('S', "s", 1),
         words::many(critical as u64, "critical race"),
         in_short(scenario, flow),
         words::many(essential as u64, "essential hazard"),
     );
-    paper.say(2, Tone::Plain, &text);
+    paper.gap();
+    paper.hang(0, 2, Tone::Plain, &text);
     if let Some(compared) = &flow.compared {
-        paper.say(2, tone(compared), &contained(compared));
+        paper.hang(0, 2, tone(compared), &format!("Against the reference, without delays: {}", contained(compared)));
     }
 }
