@@ -161,3 +161,43 @@ fn the_demonstration_turns_back_in_a_few_of_a_hundred_draws_and_a_slow_way_back_
         assert_eq!(review.verdict.call, Call::NoFailureFound, "{draw}: {:?}", review.verdict.reasons);
     }
 }
+
+/// The changes of x that Unger's test flags, of the four of the table.
+fn flagged(review: &Review) -> usize {
+    let table = &review.states.flow.table;
+    assert!(!table.states_truncated);
+    assert_eq!((table.states.len(), table.single.len()), (4, 4));
+    table.single.iter().filter(|change| change.essential == Some(true)).count()
+}
+
+#[test]
+fn each_change_of_the_table_is_an_essential_hazard() {
+    // the table itself, each state variable one gate: one change never leads where three do
+    let text = r#"
+        outputs = ["y1", "y2"]
+        [inputs]
+        x = 0
+        [initial]
+        y1 = 0
+        y2 = 0
+        [gates]
+        y1 = { expr = "!x & y2 | x & y1 | y1 & y2" }
+        y2 = { expr = "x & !y1 | !x & y2 | !y1 & y2" }
+        [[steps]]
+        set = { x = 1 }
+        [sweep]
+        samples = 10
+    "#;
+    let scenario = reader::read(text, "table.toml").unwrap_or_else(|faults| panic!("{faults}")).scenario;
+    assert_eq!(flagged(&reviewed(&scenario)), 4);
+}
+
+#[test]
+fn the_flag_stays_whatever_the_delays() {
+    // it belongs to the flow table: neither a fast inverter nor a slow way back takes it away
+    for (inverter, back) in [("[4, 12, 34]", None), ("[4, 8, 14]", None), ("[4, 12, 34]", Some("[20, 25, 32]"))] {
+        let mut scenario = scenario(inverter, back, "uniform");
+        scenario.plan.samples = 10;
+        assert_eq!(flagged(&reviewed(&scenario)), 4, "inverter {inverter}, way back {back:?}");
+    }
+}

@@ -205,7 +205,8 @@ pub struct Hazard {
     pub change: Change,
     /// From how many states of the table (for a step: that it can meet) this change has it.
     pub states: u64,
-    /// How to be rid of it from all these states, verified; only for static logic hazards.
+    /// How to be rid of it from all these states, verified; only for static logic hazards, and only if it brings no new
+    /// hazard of the net for any change of the table.
     pub cure: Option<Cure>,
 }
 
