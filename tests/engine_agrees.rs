@@ -174,6 +174,18 @@ fn transport_and_mixtures_from_rest() {
 }
 
 #[test]
+fn reject_and_involution_from_rest() {
+    let met = agree(1500, Kind { filters: Filters::Reject, delays: Lengths::Short, ..PLAIN });
+    assert!(met.cases > 100 && met.settled > 200 && met.exact > 20 && met.swallowed > 100, "{met:?}");
+    let met = agree(1500, Kind { filters: Filters::Involution, delays: Lengths::Short, ..PLAIN });
+    assert!(met.cases > 100 && met.settled > 200 && met.exact > 20 && met.swallowed > 100, "{met:?}");
+    let met = agree(900, Kind { filters: Filters::Involution, delays: Lengths::Wide, hazards: true, ..PLAIN });
+    assert!(met.cases > 100 && met.settled > 200 && met.swallowed > 100, "{met:?}");
+    let met = agree(1500, Kind { filters: Filters::All, wires: 0.3, ..PLAIN });
+    assert!(met.cases > 200 && met.settled > 200 && met.cut > 100 && met.exact > 20 && met.swallowed > 50, "{met:?}");
+}
+
+#[test]
 fn random_starts() {
     let kind = Kind { begin: Start::Random, gates: (2, 12), ..PLAIN };
     let met = agree(1800, Kind { clocks: true, ..kind });
@@ -202,6 +214,8 @@ fn rings_that_recur_and_rings_that_nearly_do() {
     assert!(met.exact > 50, "{met:?}");
     let met = agree(180, Kind { delays: Lengths::Wide, ..kind });
     assert!(met.inexact > 10, "{met:?}");
+    let met = agree(450, Kind { filters: Filters::All, wires: 0.2, delays: Lengths::Short, clocks: true, ..kind });
+    assert!(met.exact > 50 && met.cut > 100, "{met:?}");
 }
 
 /// Enough gates for the other queue, and for a heap that is more than one level deep.

@@ -282,8 +282,6 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
     let cases = [
         file("", "when = { out = 1 }\nwait = 5", ""),
         file("", "after = 50\nbounce = { lasting = [1, 5], pulses = [0, 6] }", ""),
-        file(", filter = { reject = 2 }", "after = 50", ""),
-        file(", filter = { involution = { tau = 1 } }", "after = 50", ""),
         file("", "after = 50", "[[groups]]\ngates = [\"out\"]\ntracking = 0.9"),
         file("", "after = 50", "[reference]\ncompare = [\"out\"]\n[reference.gates]\nout = { buf = [\"a\"] }"),
         file("", "after = 50", "[sweep]\nvary = \"cycle\""),

@@ -167,9 +167,7 @@ fn own_clause(scenario: &Scenario, question: &Question) -> Option<u32> {
 /// Why the verdict cannot be better than undecided, whatever else was found.
 fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
     let mut reasons = Vec::new();
-    if scenario.cannot_run {
-        reasons.push("the circuit has gates whose filter is not analysed yet; nothing was run".to_string());
-    } else if scenario.stimulus.moments.is_empty() {
+    if scenario.stimulus.moments.is_empty() {
         reasons.push("there is no step and no clock, so nothing was asked of the block in motion".to_string());
     }
     reasons.extend(scenario.not_analysed.iter().cloned());
@@ -209,7 +207,7 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
                 .map(|(reason, count)| format!("{} in up to {} draws", reason.words(), grouped(*count)))
                 .collect();
             reasons.push(format!("{what} not judged: {}", each.join(", ")));
-        } else if *judged == 0 && *written && !scenario.cannot_run {
+        } else if *judged == 0 && *written {
             reasons.push(format!("{what} was never put to the test"));
         }
     }

@@ -3,6 +3,7 @@
 //! program or by hand, "from memory" a source that was not at hand, "common practice, no source" a fact of the trade.
 
 mod engine;
+mod filters;
 mod hazards;
 mod large_networks;
 mod networks;

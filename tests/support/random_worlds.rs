@@ -31,7 +31,39 @@ pub struct Kind {
 pub enum Filters {
     Inertial,
     Transport,
+    /// Inertial and transport gates.
     Mixed,
+    Reject,
+    Involution,
+    /// Gates of all kinds.
+    All,
+}
+
+/// A filter of a kind that fits a gate's delays.
+fn filter(rng: &mut ChaCha8Rng, filters: Filters, delay: [DelayRange; 2]) -> Filter {
+    let [fall, rise] = delay.map(|range| range.min.fs());
+    let least = fall.min(rise);
+    match filters {
+        Filters::Inertial => Filter::Inertial,
+        Filters::Transport => Filter::Transport,
+        Filters::Mixed => *[Filter::Inertial, Filter::Transport].choose(rng).unwrap(),
+        // a limit of at least 1 lies below the least delay
+        Filters::Reject if least == 1 => Filter::Transport,
+        Filters::Reject => Filter::Reject(fs(rng.random_range(1..least))),
+        Filters::Involution => {
+            // from hardly felt to hardly causal
+            let causal = |tau: u64| (-(fall as f64) / tau as f64).exp() + (-(rise as f64) / tau as f64).exp() < 1.0;
+            let mut tau = rng.random_range(1..=2 * least.max(2));
+            while tau > 1 && !causal(tau) {
+                tau -= 1;
+            }
+            if causal(tau) { Filter::Involution(fs(tau)) } else { Filter::Transport }
+        }
+        Filters::All => {
+            let one = *[Filters::Mixed, Filters::Reject, Filters::Involution, Filters::Involution].choose(rng).unwrap();
+            filter(rng, one, delay)
+        }
+    }
 }
 
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -152,11 +184,7 @@ fn world(rng: &mut ChaCha8Rng, kind: Kind) -> World {
         pulses(&mut world, rng, kind.delays);
     }
     for gate in &mut world.gates {
-        gate.filter = match kind.filters {
-            Filters::Inertial => Filter::Inertial,
-            Filters::Transport => Filter::Transport,
-            Filters::Mixed => *[Filter::Inertial, Filter::Transport].choose(rng).unwrap(),
-        };
+        gate.filter = filter(rng, kind.filters, gate.delay);
     }
     for gate in world.gates.clone() {
         let mut pins = gate.pins.clone();

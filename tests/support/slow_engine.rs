@@ -39,6 +39,9 @@ struct Slow<'a> {
     nets: Vec<Value>,
     ends: Vec<Value>,
     pending: BTreeSet<Event>,
+    /// For each gate the last change of its output that was computed, also if it vanished; `None`: none, or endlessly
+    /// far back.
+    computed: Vec<Option<i128>>,
     /// Input changes of steps with skew that are still to come, in the order in which they were placed.
     coming: Vec<(u64, NetId, bool)>,
     /// Clock edges still to come.
@@ -81,6 +84,7 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
         nets,
         ends,
         pending: BTreeSet::new(),
+        computed: vec![None; circuit.gate_count()],
         coming: Vec::new(),
         edges,
         next_step: 0,
@@ -333,7 +337,8 @@ impl Slow<'_> {
 
         let mut blocks = std::mem::take(&mut self.blocks);
         for block in &mut blocks {
-            block.after_batch(at, &changed, &arrived, &self.nets, &self.ends, &self.pending);
+            let age = |node: usize| self.age(node);
+            block.after_batch(at, &changed, &arrived, &self.nets, &self.ends, &self.pending, age);
         }
         self.blocks = blocks;
     }
@@ -377,8 +382,59 @@ impl Slow<'_> {
                 }
             }
             Filter::Transport => self.schedule_all(node, v, f, delay),
-            filter => panic!("{filter:?} is not part of this engine"),
+            Filter::Reject(limit) => {
+                self.schedule_all(node, v, f, delay);
+                // the newest event stands; what lies before it, not farther than the limit, made a pulse too short
+                let mine = |pending: &BTreeSet<Event>| -> Vec<Event> {
+                    pending.iter().filter(|event| event.node == node).copied().collect()
+                };
+                let events = mine(&self.pending);
+                let Some((newest, before)) = events.split_last() else { return };
+                if newest.since < self.now {
+                    return;
+                }
+                for event in before.iter().filter(|event| newest.at - event.at <= limit.fs()) {
+                    self.cancel(*event);
+                }
+                // without them it may change nothing any more
+                let events = mine(&self.pending);
+                if events.iter().rev().nth(1).map_or(v, |event| event.value) == newest.value {
+                    self.pending.remove(newest);
+                }
+            }
+            Filter::Involution(tau) => {
+                let newest = self.pending.iter().rfind(|event| event.node == node).copied();
+                if newest.map_or(v, |event| event.value) == f {
+                    return;
+                }
+                let now = i128::from(self.now);
+                let since = self.computed[node].map(|last| now - last);
+                let at = involution(tau, delay, f == Value::One, since).map(|delta| match since {
+                    // the previous change is over: at least 1
+                    Some(0..) | None => now + delta.max(1),
+                    Some(_) => now + delta,
+                });
+                match self.computed[node] {
+                    Some(last) if at.is_none_or(|at| at <= last) => {
+                        let last = newest.filter(|event| i128::from(event.at) == last);
+                        self.cancel(last.expect("what came before has not vanished itself"));
+                    }
+                    _ => {
+                        let at = at.expect("after something, or the first") as u64;
+                        self.pending.insert(Event { at, node, value: f, since: self.now });
+                    }
+                }
+                self.computed[node] = at;
+            }
         }
+    }
+
+    /// How long ago an involution gate's last computed change was, while that still changes a delay.
+    fn age(&self, node: usize) -> Option<i128> {
+        let Some(Filter::Involution(tau)) = self.scenario.delays.filter.get(node) else { return None };
+        let (age, delay) = (i128::from(self.now) - self.computed[node]?, self.instance.delays.gate[node]);
+        let full = |rise| involution(*tau, delay, rise, Some(age)) == involution(*tau, delay, rise, None);
+        (!full(false) || !full(true)).then_some(age)
     }
 
     /// Transport: removes what is scheduled for the new time or later; what would change nothing is no event.
@@ -410,6 +466,15 @@ impl Slow<'_> {
             });
         }
     }
+}
+
+/// The formulas of the involution model, rounded; `None`: minus infinity.
+fn involution(tau: Span, delay: [Span; 2], rise: bool, since: Option<i128>) -> Option<i128> {
+    let [fall, up] = delay.map(|span| span.fs() as f64);
+    let (this, other) = if rise { (up, fall) } else { (fall, up) };
+    let Some(since) = since else { return Some(this as i128) };
+    let inside = 1.0 - (-(since as f64 + other) / tau.fs() as f64).exp();
+    (inside > 0.0).then(|| (tau.fs() as f64 * inside.ln() + this).round() as i128)
 }
 
 /// To 1 takes rise, to 0 takes fall, to X the shorter of both.
