@@ -9,6 +9,7 @@ mod draws;
 mod engine_agrees;
 mod engine_properties;
 mod golden;
+mod hands_and_partners;
 mod judges_agree;
 mod malformed;
 mod outside;

@@ -234,6 +234,9 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             observer.batch(Time::ZERO);
         }
 
+        if self.agenda.is_waiting() {
+            self.agenda.look(&plan.stimulus, Time::ZERO, &self.state);
+        }
         let mut timed = self.agenda.next(&plan.stimulus, instance, None);
         let mut batches = 0u64;
         let end = loop {
@@ -249,12 +252,17 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
                 (timed, _) => timed,
             };
             let outside = outside.map(|at| at.fs().max(self.now));
-            let at = match (top, outside) {
-                (None, None) => break End::Settled,
-                (Some((at, _)), None) => at,
-                (None, Some(at)) => at,
-                (Some((at, _)), Some(other)) => at.min(other),
+            let next = match (top, outside) {
+                (Some((at, _)), Some(other)) => Some(at.min(other)),
+                (top, outside) => top.map(|top| top.0).or(outside),
             };
+            if self.agenda.is_waiting()
+                && let Some(deadline) = self.deadline(plan, open, next)
+            {
+                self.now = deadline;
+                break self.interrupted();
+            }
+            let Some(at) = next else { break End::Settled };
             if let (Some(limit), Some(window)) = (plan.limits.time, open)
                 && (top.is_some() || self.agenda.is_moving())
                 && at > (window.start + limit).fs()
@@ -277,10 +285,18 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             } else {
                 self.inside(plan, at, observer);
             }
+            if self.agenda.is_waiting() && self.agenda.look(&plan.stimulus, Time::from_fs(at), &self.state) {
+                timed = self.agenda.next(&plan.stimulus, instance, None);
+            }
             if self.recurrence.is_touched() {
                 self.look_for_recurrence(plan);
             }
-            if self.recurrence.any() && !self.queue_is_empty() && timed.is_none() && self.all_recurred() {
+            if self.recurrence.any()
+                && !self.queue_is_empty()
+                && timed.is_none()
+                && self.agenda.deadline(&plan.stimulus).is_none()
+                && self.all_recurred()
+            {
                 break self.oscillating();
             }
             if self.transitions >= plan.limits.transitions && (!self.queue_is_empty() || self.agenda.is_moving()) {
@@ -291,15 +307,36 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             self.find_owners(plan, end == End::Settled);
             self.close(window, Time::from_fs(self.now), end, observer);
         }
-        let stopped_before = self.agenda.cannot_place(&plan.stimulus).filter(|_| matches!(end, End::Settled));
+        let never_came = self.agenda.waiting_for(&plan.stimulus).filter(|_| !matches!(end, End::Unsettled(_)));
         observer.finish(&Finish {
             at: Time::from_fs(self.now),
             end,
             state: &self.state,
             events: self.events,
-            stopped_before,
+            never_came,
         });
         true
+    }
+
+    /// When the next step stops waiting for its pattern, if that is before everything else: the next batch and the time
+    /// limit of the window. What happens at that very instant may still bring it.
+    #[cold]
+    fn deadline(&self, plan: &Plan, open: Option<Open>, next: Option<u64>) -> Option<u64> {
+        let deadline = self.agenda.deadline(&plan.stimulus)?.fs();
+        let busy = !self.queue_is_empty() || self.agenda.is_moving();
+        let limit = plan.limits.time.zip(open).filter(|_| busy).map(|(limit, window)| (window.start + limit).fs());
+        let first = |other: Option<u64>, last: bool| other.is_none_or(|at| deadline < at || last && deadline == at);
+        (deadline < Time::END.fs() && first(next, false) && first(limit, true)).then_some(deadline)
+    }
+
+    /// How a window ends that something from outside ends.
+    fn interrupted(&self) -> End {
+        let moving = self.agenda.is_moving();
+        match self.queue_is_empty() && !moving {
+            true => End::Settled,
+            false if !moving && self.recurrence.any() && self.all_recurred() => self.oscillating(),
+            false => End::Cut,
+        }
     }
 
     fn queue_is_empty(&self) -> bool {
@@ -511,8 +548,8 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         observer: &mut O,
     ) {
         let time = Time::from_fs(at);
-        let moving = self.agenda.is_moving();
-        let at_rest = self.queue_is_empty() && !moving;
+        let end = self.interrupted();
+        let at_rest = end == End::Settled;
         self.find_owners(plan, at_rest);
         let mut due = std::mem::take(&mut self.due);
         let inputs = &self.inputs;
@@ -520,11 +557,6 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         self.agenda.take(time, &plan.stimulus, instance, quiet_since, present, &mut due);
         if let Some(&moment) = due.moments.first() {
             if let Some(window) = open.take() {
-                let end = match at_rest {
-                    true => End::Settled,
-                    false if !moving && self.recurrence.any() && self.all_recurred() => self.oscillating(),
-                    false => End::Cut,
-                };
                 self.close(window, time, end, observer);
             }
             self.changed.clear();

@@ -4,7 +4,7 @@ use rustc_hash::FxHashMap;
 
 use crate::circuit::{Circuit, NetId, NetSet};
 use crate::scenario::{
-    Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Scenario, Stimulus, Swallowed,
+    Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Place, Scenario, Stimulus, Swallowed,
 };
 use crate::time::Span;
 
@@ -27,6 +27,8 @@ pub enum RuleKey {
     GlitchFree,
     /// `edges` of a step
     Edges,
+    /// `when` of a step: does its pattern come?
+    When,
     /// `[[rules.timing]]`
     Timing,
     /// `min_pulse`
@@ -51,6 +53,7 @@ impl RuleKey {
             RuleKey::Oscillation => "oscillation",
             RuleKey::GlitchFree => "glitch_free",
             RuleKey::Edges => "edges",
+            RuleKey::When => "when",
             RuleKey::Timing => "timing",
             RuleKey::MinPulse => "min_pulse",
             RuleKey::SettleWithin => "settle_within",
@@ -184,6 +187,10 @@ impl Asked {
             if let Some(expect) = &step.expect {
                 let pattern = Some(Pattern::OneOf(expect.clone()));
                 questions.push(Question { pattern, moment, ..plain(RuleKey::Expect) });
+            }
+            if let Place::When { pattern, timeout, .. } = &step.place {
+                let (pattern, bound) = (Some(Pattern::State(pattern.clone())), *timeout);
+                questions.push(Question { pattern, moment, bound, ..plain(RuleKey::When) });
             }
             for count in &step.edges {
                 let (pattern, net) = (Some(Pattern::Count(*count)), Some(count.net));

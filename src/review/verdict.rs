@@ -156,7 +156,7 @@ fn own_clause(scenario: &Scenario, question: &Question) -> Option<u32> {
     let moment = question.moment?;
     let step = scenario.stimulus.step_of(&scenario.stimulus.moments[moment as usize])?;
     let own = match question.rule {
-        RuleKey::Expect | RuleKey::Edges => true,
+        RuleKey::Expect | RuleKey::Edges | RuleKey::When => true,
         RuleKey::SettleWithin => step.settle_within.is_some(),
         RuleKey::Oscillation => step.oscillation.is_some(),
         _ => false,

@@ -198,19 +198,19 @@ fn involution_widths_behind_one_stage() {
             assert!(first.is_none_or(|at| (at - set[if high { 1 } else { 2 }]).abs() < 2e-9));
         }
     }
-    for (set, critical, part, wanted) in [
-        (a, 0.693147181, 1.25, 0.320933772),
-        (a, 0.693147181, 1.5, 0.603456457),
-        (a, 0.693147181, 2.0, 1.098611807),
-        (a, 0.693147181, 4.0, 2.708050497),
-        (b, 2.748872196, 1.5, 2.031913728),
-        (b, 2.748872196, 4.0, 9.701293535),
-        (c, 5.108256238, 2.0, 9.808291787),
-        (c, 5.108256238, 4.0, 23.099652060),
+    for (set, width, wanted) in [
+        (a, 0.866434, 0.320933772),
+        (a, 1.039721, 0.603456457),
+        (a, 1.386294, 1.098611807),
+        (a, 2.772589, 2.708050497),
+        (b, 4.123308, 2.031913728),
+        (b, 10.995489, 9.701293535),
+        (c, 10.216512, 9.808291787),
+        (c, 20.433025, 23.099652060),
     ] {
-        let (widths, _) = pulse_through(set, true, critical * part, 1);
-        let width = widths[0].expect("it passes");
-        assert!((width - wanted).abs() < 2e-8, "{set:?} {part}: {width} and not {wanted}");
+        let (widths, _) = pulse_through(set, true, width, 1);
+        let found = widths[0].expect("it passes");
+        assert!((found - wanted).abs() < 2e-6, "{set:?} {width}: {found} and not {wanted}");
     }
 }
 

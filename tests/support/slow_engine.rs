@@ -42,13 +42,17 @@ struct Slow<'a> {
     /// For each gate the last change of its output that was computed, also if it vanished; `None`: none, or endlessly
     /// far back.
     computed: Vec<Option<i128>>,
-    /// Input changes of steps with skew that are still to come, in the order in which they were placed.
+    /// Input changes of steps with skew or bounce that are still to come, in the order in which they were placed.
     coming: Vec<(u64, NetId, bool)>,
     /// Clock edges still to come.
     edges: BTreeSet<(u64, u32, NetId, bool)>,
     next_step: usize,
     /// The instant of the step before.
     placed: u64,
+    /// When the last input of the steps before has changed.
+    inputs_done: u64,
+    /// When the pattern came that the next step waits for.
+    came: Option<u64>,
     blocks: Vec<Block>,
     window: Option<Open>,
     record: Record,
@@ -89,6 +93,8 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
         edges,
         next_step: 0,
         placed: 0,
+        inputs_done: 0,
+        came: None,
         blocks,
         window: None,
         record,
@@ -100,6 +106,7 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
             slow.evaluate(gate);
         }
     }
+    slow.look_for_pattern();
     while slow.batch() {}
     slow.record
 }
@@ -120,12 +127,39 @@ impl Slow<'_> {
         let step = self.scenario.stimulus.steps.get(self.next_step)?;
         let wait = self.instance.places[self.next_step].fs();
         match step.place {
-            _ if step.bounce.is_some() => None,
             Place::At(_) => Some(wait),
             Place::After(_) => Some(self.placed + wait),
             Place::Rest(_) => (!self.busy() && self.edges.is_empty()).then_some(self.now + wait),
-            Place::When { .. } => None,
+            Place::When { .. } => self.came.map(|came| came + wait),
         }
+    }
+
+    /// Looks whether the next step waits for a pattern that shows now.
+    fn look_for_pattern(&mut self) {
+        let Some(step) = self.scenario.stimulus.steps.get(self.next_step) else { return };
+        if let Place::When { pattern, .. } = &step.place
+            && self.now >= self.inputs_done
+            && pattern.iter().all(|(net, bit)| self.nets[net.index()] == Value::from(*bit))
+        {
+            self.came = self.came.or(Some(self.now));
+        }
+    }
+
+    /// The step that waits for a pattern which has not come, and when it gives up.
+    fn waiting(&self) -> Option<(usize, Option<u64>)> {
+        match self.scenario.stimulus.steps.get(self.next_step)?.place {
+            Place::When { timeout, .. } if self.came.is_none() => {
+                Some((self.next_step, timeout.map(|timeout| self.placed + timeout.fs())))
+            }
+            _ => None,
+        }
+    }
+
+    /// The run ends without the pattern that the next step waits for.
+    fn give_up(&mut self, at: u64, end: End) -> bool {
+        self.close(at, end);
+        self.record.never_came = self.waiting().map(|(step, _)| self.moment(step));
+        false
     }
 
     /// Is anything pending, input changes to come included?
@@ -137,7 +171,9 @@ impl Slow<'_> {
     fn timed_to_come(&self) -> bool {
         let next = self.scenario.stimulus.steps.get(self.next_step);
         !self.edges.is_empty()
-            || next.is_some_and(|step| step.bounce.is_none() && matches!(step.place, Place::At(_) | Place::After(_)))
+            || self.came.is_some()
+            || self.waiting().is_some_and(|(_, timeout)| timeout.is_some())
+            || next.is_some_and(|step| matches!(step.place, Place::At(_) | Place::After(_)))
     }
 
     /// Have all blocks with events pending recurred? Then the first of them.
@@ -193,13 +229,20 @@ impl Slow<'_> {
         let change = self.coming.iter().map(|change| change.0).min();
         let edge = self.edges.first().map(|edge| edge.0);
         let step = self.step_instant();
-        let Some(at) = [event, change, edge, step].into_iter().flatten().min() else {
-            self.close(self.now, End::Settled);
-            // it ends at rest before a step that is not analysed yet
-            self.record.stopped_before =
-                (self.next_step < self.scenario.stimulus.steps.len()).then(|| self.moment(self.next_step));
-            return false;
-        };
+        let next = [event, change, edge, step].into_iter().flatten().min();
+        if let Some((_, Some(timeout))) = self.waiting() {
+            let limit = self.scenario.limits.time.zip(self.window.as_ref()).filter(|_| self.busy());
+            let limit = limit.map(|(limit, open)| open.start + limit.fs());
+            // what happens at the very instant of the timeout is in time
+            if next.is_none_or(|at| at > timeout) && limit.is_none_or(|at| at >= timeout) {
+                let end = match self.busy() {
+                    false => End::Settled,
+                    true => self.oscillation().map_or(End::Cut, Slow::end_of),
+                };
+                return self.give_up(timeout, end);
+            }
+        }
+        let Some(at) = next else { return self.give_up(self.now, End::Settled) };
         if let (Some(limit), Some(open)) = (self.scenario.limits.time, &self.window)
             && self.busy()
             && at > open.start + limit.fs()
@@ -245,10 +288,10 @@ impl Slow<'_> {
             }
         }
         self.react(&before.0, &before.1);
+        self.look_for_pattern();
         if self.busy() {
             if let (Some(end), false) = (self.oscillation().map(Slow::end_of), self.timed_to_come()) {
-                self.close(at, end);
-                return false;
+                return self.give_up(at, end);
             }
             if self.window.as_ref().is_some_and(|open| open.transitions >= self.scenario.limits.transitions) {
                 self.close(at, End::Unsettled(Hit::Transitions));
@@ -276,13 +319,26 @@ impl Slow<'_> {
                 let when = at + skews.map_or(0, |skews| skews[entry].fs()) - least;
                 let before = self.coming.iter().rfind(|change| change.1 == *net).map(|change| Value::from(change.2));
                 last.insert(*net, *bit);
-                // an input that is set to what it has does not change
-                if before.unwrap_or(self.nets[net.index()]) != Value::from(*bit) {
-                    settle_from = settle_from.max(when);
-                    self.coming.push((when, *net, *bit));
+                let mut before = before.unwrap_or(self.nets[net.index()]);
+                // an input that is set to what it has does not change, and does not bounce
+                if before == Value::from(*bit) {
+                    continue;
+                }
+                let mut moves = BTreeMap::from([(when, *bit)]);
+                for (n, toggle) in self.instance.bounces[self.next_step].get(entry).into_iter().flatten().enumerate() {
+                    moves.insert(when + toggle.fs(), *bit ^ (n % 2 == 0));
+                }
+                for (when, bit) in moves {
+                    if before != Value::from(bit) {
+                        settle_from = settle_from.max(when);
+                        self.coming.push((when, *net, bit));
+                    }
+                    before = Value::from(bit);
                 }
             }
             self.placed = at;
+            self.inputs_done = settle_from;
+            self.came = None;
             self.next_step += 1;
         }
         for (_, moment, net, bit) in self.edges.iter().filter(|edge| edge.0 == at) {

@@ -14,9 +14,10 @@ impl Slow<'_> {
         for (number, question) in self.asked.questions.iter().enumerate() {
             if question.rule == RuleKey::Reference {
                 self.answer(number as u32, Answer::Not(Reason::NotAnalysedYet));
+            } else if question.rule == RuleKey::When {
+                // judged below
             } else if question.moment.is_some_and(|moment| self.window_of(moment).is_none()) {
-                let reason = if self.stopped() { Reason::NotAnalysedYet } else { Reason::NotReached };
-                self.answer(number as u32, Answer::Not(reason));
+                self.answer(number as u32, Answer::Not(Reason::NotReached));
             }
         }
     }
