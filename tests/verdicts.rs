@@ -4,6 +4,7 @@ use stillgate::circuit::NetId;
 use stillgate::control::Control;
 use stillgate::engine::Program;
 use stillgate::findings::{Kind, Reason, RuleKey};
+use stillgate::logic::Value;
 use stillgate::output::text;
 use stillgate::reader;
 use stillgate::review::{Call, Review, review};
@@ -281,7 +282,6 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
     file("", "after = 50", "").is(Call::NoFailureFound, &[]);
     let cases = [
         file("", "after = 50", "[[groups]]\ngates = [\"out\"]\ntracking = 0.9"),
-        file("", "after = 50", "[reference]\ncompare = [\"out\"]\n[reference.gates]\nout = { buf = [\"a\"] }"),
         file("", "after = 50", "[sweep]\nvary = \"cycle\""),
     ];
     for case in &cases {
@@ -306,6 +306,122 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
     // but what is broken without it is broken
     let broken = "[[rules.never]]\nstate = { a = 0 }\n[[groups]]\ngates = [\"out\"]\ntracking = 0.9";
     file("", "after = 50", broken).is(Call::Broken, &["never"]);
+}
+
+#[test]
+fn a_state_that_the_reference_does_not_allow_breaks_it() {
+    let file = |wanted: &str, rules: &str| {
+        Reviewed::of(&format!(
+            r#"
+            [inputs]
+            a = 0
+            [gates]
+            out = {{ buf = ["a"], delay = [5, 15] }}
+            [[steps]]
+            label = "first"
+            at = 100
+            set = {{ a = 1 }}
+            [[steps]]
+            label = "second"
+            {rules}
+            set = {{ a = 0 }}
+            [reference]
+            [reference.gates]
+            out = {{ {wanted} }}
+            "#
+        ))
+    };
+    file("buf = [\"a\"]", "").is(Call::NoFailureFound, &["in 200 draws"]);
+    // it should hold what it was given
+    let held = file("expr = \"a | out\"", "");
+    held.is(
+        Call::Broken,
+        &["not-in-reference", "\"second\"", "rests at out=0, the reference allows out=1", "in 200 of 200"],
+    );
+    let [first, second] = &held.review.sweep.windows[..] else { panic!("two steps") };
+    assert!(!first.outcomes[0].breaks_rule && second.outcomes[0].breaks_rule);
+    // a step that comes too early leaves a window that is not judged, and one whose state before is not known:
+    // out = 0 is a stable state of the reference, and that is all that can be asked
+    let early = file("expr = \"a | out\"", "after = 5");
+    early.is(Call::Undecided, &["reference", "cut"]);
+    let rule = |case: &Reviewed, moment: u32| {
+        let mut rules = case.review.sweep.rules.iter();
+        let found = rules.find(|it| it.question.rule == RuleKey::Reference && it.question.moment == Some(moment));
+        let found = found.expect("a question for each step");
+        (found.judged, found.broken, found.not_judged.clone())
+    };
+    let (judged, broken, not_judged) = rule(&early, 0);
+    assert_eq!((broken, not_judged), (0, vec![(Reason::Cut, 200 - judged)]));
+    assert_eq!(rule(&early, 1), (200, 0, vec![]));
+    // an impossible state before: nothing may follow
+    let never = file("expr = \"!a\"", "");
+    never.is(Call::Broken, &["\"first\" (rests at out=1, the reference allows nothing from there)"]);
+}
+
+#[test]
+fn a_race_of_which_the_reference_allows_one_end() {
+    let latch = |wanted: &str| {
+        Reviewed::of(&format!(
+            r#"
+            outputs = ["q"]
+            [inputs]
+            r = 1
+            s = 1
+            [gates]
+            q = {{ nor = ["r", "qn"], delay = [5, 9] }}
+            qn = {{ nor = ["s", "q"], delay = [4, 7] }}
+            [[steps]]
+            label = "both let go"
+            at = 100
+            set = {{ r = 0, s = 0 }}
+            [rules]
+            critical_race = "allowed"
+            [reference]
+            [reference.gates]
+            {wanted}
+            "#
+        ))
+    };
+    let either = "q = { nor = [\"r\", \"other\"] }\nother = { nor = [\"s\", \"q\"] }";
+    latch(either).is(Call::NoFailureFound, &[]);
+    // resetting wins
+    let reset = latch("q = { expr = \"!r & (s | q)\" }");
+    reset.is(Call::Broken, &["not-in-reference", "rests at q=1, the reference allows q=0"]);
+    let window = &reset.review.sweep.windows[0];
+    assert_eq!(window.outcomes.len(), 2);
+    for outcome in &window.outcomes {
+        let q = reset.scenario.circuit.net("q").unwrap();
+        assert_eq!(outcome.breaks_rule, outcome.state.get(q.index()) == Value::One, "{outcome:?}");
+    }
+    let finding = &reset.review.sweep.findings[0];
+    assert_eq!(finding.subject.kind, Kind::NotInReference);
+    assert_eq!(finding.count, window.outcomes.iter().filter(|it| it.breaks_rule).map(|it| it.count).sum::<u64>());
+}
+
+#[test]
+fn after_power_up_the_reference_says_where_it_may_rest() {
+    let file = |wanted: &str| {
+        Reviewed::of(&format!(
+            r#"
+            begin = "random"
+            outputs = ["q"]
+            [inputs]
+            r = 0
+            s = 0
+            [gates]
+            q = {{ nor = ["r", "qn"], delay = [5, 9] }}
+            qn = {{ nor = ["s", "q"], delay = [4, 7] }}
+            [rules]
+            critical_race = "allowed"
+            [reference]
+            [reference.gates]
+            q = {{ {wanted} }}
+            "#
+        ))
+    };
+    // a random start is no state of rest to come from: either bit will do
+    file("expr = \"!r & (s | q)\"").is(Call::NoFailureFound, &[]);
+    file("expr = \"s & !r\"").is(Call::Broken, &["\"power-up\" (rests at q=1, the reference allows q=0)"]);
 }
 
 #[test]

@@ -29,6 +29,8 @@ pub(super) struct Due {
     pub moments: Vec<u32>,
     /// Input changes of this instant, in the order in which they are made.
     pub set: Vec<(NetId, bool)>,
+    /// Inputs that bounce, and so move whatever they lead to.
+    pub bouncing: Vec<NetId>,
     /// All values that the steps of this instant lead to, skewed ones included.
     pub becomes: Vec<(NetId, bool)>,
     /// The last input change of the steps of this instant.
@@ -130,6 +132,7 @@ impl Agenda {
         due.moments.clear();
         due.set.clear();
         due.becomes.clear();
+        due.bouncing.clear();
         due.settle_from = at;
         let clocks_over = self.clocks.iter().all(|(edge, _)| *edge == OVER);
         let mut rest_since = quiet_since.filter(|_| clocks_over && self.later.is_empty());
@@ -149,11 +152,8 @@ impl Agenda {
                 let delay = skews.get(i).map_or(Span::ZERO, |skew| *skew - earliest);
                 due.becomes.push((net, value));
                 let before = due.set.iter().rfind(|set| set.0 == net).map_or_else(|| present(net), |set| set.1);
-                if before == value {
-                    // nothing changes: nothing is to come, no contact bounces, and settling does not wait for it
-                    continue;
-                }
                 let toggles = instance.bounces.get(self.step).and_then(|of_step| of_step.get(i));
+                // nothing to come where an input is set to what it has: settling does not wait for it
                 let (mut held, mut next) = (before, value);
                 let mut moves = std::iter::once(&Span::ZERO).chain(toggles.into_iter().flatten()).peekable();
                 while let Some(since) = moves.next() {
@@ -164,6 +164,9 @@ impl Agenda {
                         continue;
                     }
                     held = new;
+                    if toggles.is_some() && !due.bouncing.contains(&net) {
+                        due.bouncing.push(net);
+                    }
                     let when = at + delay + *since;
                     if when == at {
                         due.set.push((net, new));

@@ -561,7 +561,7 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             }
             self.changed.clear();
             last_of_each(&due.becomes, |net, value| {
-                if self.inputs[net.index()].value() != Value::from(value) {
+                if self.inputs[net.index()].value() != Value::from(value) || due.bouncing.contains(&net) {
                     self.changed.push(net);
                 }
             });

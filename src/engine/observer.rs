@@ -40,7 +40,7 @@ pub struct Opening<'a> {
     pub moments: &'a [u32],
     /// Was the circuit at rest just before?
     pub at_rest: bool,
-    /// The inputs that end up with another value, in no particular order.
+    /// The inputs that end up with another value or bounce, in no particular order.
     pub inputs: &'a [NetId],
     /// The last input change of this step; later than `at` only with skew and bounce.
     pub settle_from: Time,

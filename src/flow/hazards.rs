@@ -34,7 +34,7 @@ use crate::statics::transients::{Exhausted, Open, Transients, Verdict, longest_a
 pub const MAX_CHANGING: usize = 12;
 
 /// Most steps of the search in all: words of gates (a source read, a position of a lattice), values of functions.
-pub const MAX_WORK: u64 = 400_000_000;
+pub const MAX_WORK: u64 = 1 << 25;
 
 /// Most different cures of one hazard; states that need another have none.
 const CURES_EACH: usize = 8;
@@ -180,7 +180,7 @@ impl Search<'_> {
             };
             let transients = &mut built.view.transients;
             // one allowance for both
-            let spent = self.plain.transients.work;
+            let spent = self.plain.transients.work();
             transients.change(full, &moving, most.saturating_sub(spent))?;
             for gate in transients.looked_at().to_vec() {
                 let net = built.view.open.circuit.net_of(gate);
@@ -216,8 +216,8 @@ impl View<'_> {
         }
         let circuit = self.open.circuit;
         let sources: u64 = gates.iter().map(|gate| circuit.sources(*gate).len() as u64).sum();
-        self.transients.work += sources << inputs.len();
-        if self.transients.work > most {
+        self.transients.add_work(sources << inputs.len());
+        if self.transients.work() > most {
             return Err(Exhausted);
         }
         // values on the way, of the nets that move; a feedback net among them is seen at its old value

@@ -22,7 +22,7 @@ pub struct Instance {
     pub places: Vec<Span>,
     /// For each step, how much later than its placed instant each input of its `set` changes; empty without skew.
     pub skews: Vec<Vec<Span>>,
-    /// For each step, how much later than its change each input of its `set` toggles, ascending, an even number of times;
+    /// For each step, how much later than its moment each input of its `set` toggles, ascending, an even number of times;
     /// empty without bounce.
     pub bounces: Vec<Vec<Vec<Span>>>,
     /// One a clock.

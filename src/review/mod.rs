@@ -2,12 +2,14 @@
 //! verdict. Plain data; nothing is drawn here.
 
 mod contained;
+mod departure;
 mod report;
 mod single;
 mod verdict;
 
 use std::collections::BTreeMap;
 
+pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
 pub use verdict::{grouped, verdict, with_typical};

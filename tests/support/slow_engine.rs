@@ -310,6 +310,7 @@ impl Slow<'_> {
             RecordedOpening { pending: self.pending_nets(), state: self.nets.clone(), ..RecordedOpening::default() };
         let mut settle_from = at;
         let mut last: BTreeMap<NetId, bool> = BTreeMap::new();
+        let mut bouncing: BTreeSet<NetId> = BTreeSet::new();
         // a step by rest is a batch of its own; steps right after it, without a wait, belong to it
         while self.step_instant() == Some(at) && (opening.moments.is_empty() || !self.by_rest()) {
             opening.moments.push(self.moment(self.next_step));
@@ -319,11 +320,8 @@ impl Slow<'_> {
                 let when = at + skews.map_or(0, |skews| skews[entry].fs()) - least;
                 let before = self.coming.iter().rfind(|change| change.1 == *net).map(|change| Value::from(change.2));
                 last.insert(*net, *bit);
+                // an input that is set to what it has does not change, but its contact bounces all the same
                 let mut before = before.unwrap_or(self.nets[net.index()]);
-                // an input that is set to what it has does not change, and does not bounce
-                if before == Value::from(*bit) {
-                    continue;
-                }
                 let mut moves = BTreeMap::from([(when, *bit)]);
                 for (n, toggle) in self.instance.bounces[self.next_step].get(entry).into_iter().flatten().enumerate() {
                     moves.insert(when + toggle.fs(), *bit ^ (n % 2 == 0));
@@ -332,6 +330,9 @@ impl Slow<'_> {
                     if before != Value::from(bit) {
                         settle_from = settle_from.max(when);
                         self.coming.push((when, *net, bit));
+                        if self.scenario.stimulus.steps[self.next_step].bounce.is_some() {
+                            bouncing.insert(*net);
+                        }
                     }
                     before = Value::from(bit);
                 }
@@ -345,7 +346,8 @@ impl Slow<'_> {
             opening.moments.push(*moment);
             last.insert(*net, *bit);
         }
-        let changes = |(net, bit): &(NetId, bool)| self.nets[net.index()] != Value::from(*bit);
+        let changes =
+            |(net, bit): &(NetId, bool)| self.nets[net.index()] != Value::from(*bit) || bouncing.contains(net);
         opening.inputs = last.into_iter().filter(changes).map(|(net, _)| net).collect();
         self.window = Some(Open { opening, start: at, settle_from, last: None, at_rest, transitions: 0 });
     }

@@ -2,6 +2,7 @@
 
 use super::edges::{MinPulse, Timing};
 use super::nets::{Count, NONE, Settle, Watch};
+use super::reference::AgainstReference;
 use super::sink::Sink;
 use super::span::Cone;
 use super::states::{Expect, Never, NotAtRest};
@@ -154,7 +155,7 @@ impl<S: Sink> Judge<S> {
         let mut by_moment = vec![Vec::new(); moments];
         for (q, question) in asked.questions.iter().enumerate() {
             if let Some(moment) = question.moment
-                && !matches!(question.rule, RuleKey::Reference | RuleKey::When)
+                && question.rule != RuleKey::When
             {
                 by_moment[moment as usize].push(q as u32);
             }
@@ -170,7 +171,6 @@ impl<S: Sink> Judge<S> {
         let oscillation = said.map(|own| own.unwrap_or(rules.oscillation)).collect();
         let whens = asked.questions.iter().enumerate().filter(|(_, q)| q.rule == RuleKey::When);
         let when_questions = whens.filter_map(|(q, question)| Some((question.moment?, q as u32))).collect();
-        let references = asked.questions.iter().enumerate().filter(|(_, q)| q.rule == RuleKey::Reference);
         Judge {
             sink,
             inputs: circuit.input_count() as u32,
@@ -185,7 +185,6 @@ impl<S: Sink> Judge<S> {
                 Before::Allowed => vec![NONE; moments],
             },
             when_questions,
-            reference_questions: references.map(|(q, _)| q as u32).collect(),
             swallowed_broken: vec![false; swallowed_questions.len()],
             swallowed_questions,
             by_moment,
@@ -200,6 +199,7 @@ impl<S: Sink> Judge<S> {
             nevers,
             timings,
             min_pulses,
+            against_reference: AgainstReference::of(scenario, asked),
             never_dirty: false,
             timing_dirty: false,
             moment: None,

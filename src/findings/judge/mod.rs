@@ -3,12 +3,14 @@
 mod build;
 mod edges;
 mod nets;
+mod reference;
 mod sink;
 mod span;
 mod states;
 
 use edges::{MinPulse, Timing};
 use nets::{Count, NONE, Settle, Watch};
+use reference::AgainstReference;
 pub use sink::{Answers, Seen, Sink};
 use span::{Cone, NetWindow, Shut, reason_of};
 use states::{Expect, Never, NotAtRest};
@@ -49,7 +51,6 @@ pub struct Judge<S> {
     before_rest_questions: Vec<u32>,
     /// Moment and number of the questions whether a pattern comes.
     when_questions: Vec<(u32, u32)>,
-    reference_questions: Vec<u32>,
     swallowed_questions: Vec<(Option<NetId>, u32)>,
     /// Questions of each moment that wait for it to be reached.
     by_moment: Vec<Vec<u32>>,
@@ -66,6 +67,7 @@ pub struct Judge<S> {
     nevers: Vec<Never>,
     timings: Vec<Timing>,
     min_pulses: Vec<MinPulse>,
+    against_reference: Option<AgainstReference>,
     never_dirty: bool,
     timing_dirty: bool,
 
@@ -241,6 +243,10 @@ impl<S: Sink> Judge<S> {
             }
         }
 
+        if let Some(reference) = &mut self.against_reference {
+            reference.close(closing, self.has_before.then_some(&self.before), sink);
+        }
+
         for gate in self.swallowing.drain(..) {
             let worst = std::mem::take(&mut self.swallowed[gate as usize]);
             let net = NetId(self.inputs + gate);
@@ -352,6 +358,9 @@ impl<S: Sink> Observer for Judge<S> {
                     self.sink.fact(Fact { subject, breaks_rule: true, measure: None, place });
                 }
             }
+        }
+        if let Some(reference) = &mut self.against_reference {
+            reference.open(opening.moments);
         }
         self.moment = opening.moments.first().copied();
         self.opened = opening.at;
@@ -486,9 +495,6 @@ impl<S: Sink> Observer for Judge<S> {
                     self.sink.fact(Fact { subject, breaks_rule: true, measure: None, place: None });
                 }
             }
-        }
-        for question in &self.reference_questions {
-            self.sink.not_judged(*question, Reason::NotAnalysedYet);
         }
         if self.reached_count < self.reached.len() {
             for (moment, _) in self.reached.iter().enumerate().filter(|(_, reached)| !**reached) {
