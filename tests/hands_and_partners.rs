@@ -345,7 +345,7 @@ fn spans_of_drawn_bounces_lie_in_their_ranges_and_the_last_toggle_ends_them() {
     for sample in 0..400 {
         let toggles = &Instance::of(&scenario, &Which::Sample(sample)).bounces[0][0];
         pairs[toggles.len() / 2] += 1;
-        assert!(toggles.len() % 2 == 0 && toggles.is_sorted());
+        assert!(toggles.len().is_multiple_of(2) && toggles.is_sorted());
         assert!(toggles.last().is_none_or(|last| (fs(1000)..=fs(3000)).contains(last)), "{toggles:?}");
         assert!(toggles.iter().rev().skip(1).all(|it| Some(it) < toggles.last() && *it >= Span::ZERO));
     }

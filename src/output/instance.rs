@@ -151,10 +151,10 @@ when = { qn = 1, "u1.q" = 0 }
 wait = [0, 7]
 timeout = 500
 set = { "bus[0]" = 0 }
-bounce = { lasting = [1, 20], pulses = [0, 3] }
+bounce = { lasting = [1, 20], pulses = [0, 30] }
 [[steps]]
 times = 3
-steps = [ { after = [50, 70], set = { "bus[0]" = 0 }, skew = [0, 5], bounce = { lasting = 9, pulses = [1, 9] } }, { set = { "bus[0]" = 1 } } ]
+steps = [ { after = [50, 70], set = { "bus[0]" = 0 }, skew = [0, 5], bounce = { lasting = 9, pulses = [1, 5] } }, { set = { "bus[0]" = 1 } } ]
 [[clocks]]
 net = "clk.main"
 first = [0, 10]

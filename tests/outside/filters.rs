@@ -1,5 +1,7 @@
 //! What gates do with short pulses: the rules of IEEE 1076, and published figures of the involution delay model.
 
+use std::f64::consts::LN_2;
+
 use stillgate::circuit::Function::Buf;
 use stillgate::delay::Filter::{self, Inertial, Transport};
 
@@ -185,8 +187,8 @@ fn pulse_through(
 fn involution_widths_behind_one_stage() {
     let [a, b, c] = INVOLUTIONS;
     for (set, high, critical) in [
-        (a, true, 0.693147181),
-        (a, false, 0.693147181),
+        (a, true, LN_2),
+        (a, false, LN_2),
         (b, true, 2.748872196),
         (b, false, 1.532476871),
         (c, true, 5.108256238),
