@@ -325,6 +325,8 @@ fn a_state_that_the_reference_does_not_allow_breaks_it() {
             label = "second"
             {rules}
             set = {{ a = 0 }}
+            [sweep]
+            samples = 200
             [reference]
             [reference.gates]
             out = {{ {wanted} }}
@@ -376,6 +378,8 @@ fn a_race_of_which_the_reference_allows_one_end() {
             set = {{ r = 0, s = 0 }}
             [rules]
             critical_race = "allowed"
+            [sweep]
+            samples = 200
             [reference]
             [reference.gates]
             {wanted}
@@ -399,6 +403,39 @@ fn a_race_of_which_the_reference_allows_one_end() {
 }
 
 #[test]
+fn a_reference_that_is_too_much_to_follow_leaves_the_verdict_undecided() {
+    // 14 gates of one ring that all want to rise together
+    let ring: String = (0..14).map(|at| format!("g{at} = {{ nor = [\"stop\", \"g{}\"] }}\n", (at + 1) % 14)).collect();
+    let file = |gates: &str| {
+        Reviewed::of(&format!(
+            r#"
+            outputs = ["g0", "g1"]
+            [inputs]
+            stop = 1
+            [gates]
+            {gates}
+            [[steps]]
+            set = {{ stop = 0 }}
+            [rules]
+            critical_race = "allowed"
+            oscillation = "allowed"
+            [sweep]
+            samples = 200
+            [reference]
+            [reference.gates]
+            {ring}
+            "#
+        ))
+    };
+    let pair =
+        file("g0 = { nor = [\"stop\", \"g1\"], delay = [4, 9] }\ng1 = { nor = [\"stop\", \"g0\"], delay = [4, 9] }");
+    pair.is(Call::Undecided, &["reference not judged: budget ran out in up to 200 draws"]);
+    // but where the reference has no such stable state it is broken all the same
+    file("g0 = { not = [\"stop\"] }\ng1 = { not = [\"stop\"] }")
+        .is(Call::Broken, &["rests at g0=1 g1=1, the reference allows g0=0 g1=1 or g0=1 g1=0"]);
+}
+
+#[test]
 fn after_power_up_the_reference_says_where_it_may_rest() {
     let file = |wanted: &str| {
         Reviewed::of(&format!(
@@ -413,6 +450,8 @@ fn after_power_up_the_reference_says_where_it_may_rest() {
             qn = {{ nor = ["s", "q"], delay = [4, 7] }}
             [rules]
             critical_race = "allowed"
+            [sweep]
+            samples = 200
             [reference]
             [reference.gates]
             q = {{ {wanted} }}

@@ -15,10 +15,14 @@
 //! All this is whatever the delays of gates *and wires*. With wires that take no time, and with what is known of delays,
 //! a hazard may be unable to show: that is for the other views.
 //!
-//! What happens once feedback nets move, (x′, y) → (x′, y′), is not judged here: whether they win or lose a race is said of
-//! the whole transition, whether an input may be late behind them is the essential hazard. A hazard found here is real all the same when a feedback net
-//! moves later in the same transition: delays have no bound, so all of it can happen before. Only what is seen then is
-//! this and the rest: a static hazard of a net that goes on to change shows as a dynamic glitch.
+//! What happens once feedback nets move, (x′, y) → (x′, y′), is not judged here: whether they win or lose a race is said
+//! of the whole transition, whether an input may be late behind them is the essential hazard. A hazard found here is
+//! real all the same when a feedback net moves later in the same transition: delays have no bound, so all of it can happen
+//! before. Only what is seen then is this and the rest: a static hazard of a net that goes on to change shows as a dynamic
+//! glitch.
+//!
+//! The delay of a loop is thought to be at its feedback net. Cut elsewhere, the same pulse may appear as the hazard of another
+//! net of the loop.
 
 use rustc_hash::FxHashMap;
 
@@ -54,7 +58,7 @@ pub struct Hazards {
 /// The hazards of all transitions of a flow table, of these nets and of all feedback nets. Of the table, only the
 /// states and the changes are used, not what follows them.
 ///
-/// Only gates that may move are looked at, so the time goes with what moves, not with the circuit; after [`MAX_WORK`]
+/// Only gates that may move are looked at, so the time goes with what moves, not with the circuit; after `MAX_WORK`
 /// steps it ends, and the result says so.
 ///
 /// Errors: only [`FlowError::Cancelled`]. Panics if the table is not one of this circuit.

@@ -23,6 +23,8 @@ use crate::statics::{Change, GaveUp, Outcome, bound_restless, outcome, stable_st
 
 /// Stable states of the reference from which one change is followed, at most.
 const STATES: usize = 256;
+/// Most nodes of the decision diagram of one question, about 25 MB: a sweep may ask thousands.
+const NODES: usize = 1 << 20;
 /// Different views that a list of allowed ones keeps, at most.
 const VIEWS: usize = 4096;
 /// Words that are remembered: about 16 MB.
@@ -134,9 +136,10 @@ impl std::fmt::Debug for Allowed {
 }
 
 impl Allowed {
-    /// The oracle of a reference. Of `control` only the budget counts: an answer is given whole.
+    /// The oracle of a reference. Of `control` only the budget counts, up to a million nodes: an answer is given whole.
     pub fn of(reference: Arc<Reference>, control: &Control) -> Allowed {
-        let control = Control { nodes: control.nodes, ..Control::default() };
+        let nodes = if control.nodes == 0 { NODES } else { control.nodes.min(NODES) };
+        let control = Control { nodes, ..Control::default() };
         Allowed { reference, control, memo: Mutex::default() }
     }
 

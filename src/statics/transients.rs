@@ -4,11 +4,12 @@
 //! the stable state before, and what its gate makes of the change is what is *wanted* of it. This is the first half of
 //! every move in fundamental mode: the logic sees the new inputs with the state as it was (Huffman 1954; Unger 1969).
 //!
-//! A [`Word`] is a start value and the greatest number of changes, as far as it matters. The word of a gate follows from those of its sources:
-//! of all orders in which the changes of the sources may come, the one in which the function changes most often. An order
-//! is a monotone path through the lattice of positions (how many changes of each source have come), and the longest
-//! alternation over all paths is found by dynamic programming (algebra of transients: J. Brzozowski, Z. Ésik, Formal
-//! Methods in System Design 23 (2003) 223-256; closed forms for AND and OR there, too).
+//! A [`Word`] is a start value and the greatest number of changes, as far as it matters. The word of a gate follows from
+//! those of its sources: of all orders in which the changes of the sources may come, the one in which the function changes
+//! most often. An order is a monotone path through the lattice of positions (how many changes of each source have come), and
+//! the longest alternation over all paths is found by dynamic programming (algebra of transients: J. Brzozowski, Z. Ésik,
+//! Formal Methods in System Design 23 (2003) 223-256 \[PAGE <https://link.springer.com/article/10.1023/A:1026218512171>\]; closed
+//! forms for AND and OR there, too, from memory).
 //!
 //! What the number means. Let every wire between a net and a gate that reads it be a queue: it delivers each change once,
 //! in order, after any time, which may be another one for every change. Then the number is reached, and never exceeded.

@@ -264,16 +264,17 @@ fn together(
     loops.sort_unstable();
     for (component, nets) in loops {
         let inside = moving.with_sources(nets.into_iter());
-        let (mut most, mut counted) = (0, Vec::new());
+        let mut most = 0;
         for members in parts_of(moving, moving.nodes.len(), &inside) {
-            let held_in = |part: &Part| members.iter().all(|node| part.members.binary_search(node).is_ok());
-            // what sources do does not depend on their readers
-            let excited = match parts.iter().position(held_in) {
-                Some(part) if counted.contains(&part) => 0,
-                Some(part) => {
-                    counted.push(part);
-                    parts[part].found.excited_of(component)
-                }
+            let has = |nodes: &[u32], node: &u32| nodes.binary_search(node).is_ok();
+            // what sources do does not depend on their readers, but only the nets of these members are to be counted
+            let explored = |part: &&Part| {
+                let of_loop = |node: &&u32| moving.component(**node) == Some(component);
+                members.iter().all(|node| has(&part.members, node))
+                    && part.members.iter().filter(of_loop).all(|node| has(&members, node))
+            };
+            let excited = match parts.iter().find(explored) {
+                Some(part) => part.found.excited_of(component),
                 None => match explore(moving, &members, effort, left, control)? {
                     Some(found) => found.excited_of(component),
                     None => return Ok(None),

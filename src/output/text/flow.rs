@@ -136,8 +136,8 @@ fn row(scenario: &Scenario, flow: &Flow, nets: &[(&str, Vec<NetId>)], number: St
 /// Races, oscillations, bounds and essential hazards of the table.
 pub(super) fn dynamics(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     let all = || flow.table.steps.iter().chain(&flow.table.single);
-    let is = |race: Race| all().filter(|it| flow_words::race(&it.to) == Some(race)).count() as u64;
-    let critical: Vec<&Transition> = distinct(all().filter(|it| flow_words::race(&it.to) == Some(Race::Critical)));
+    let of = |race: Race| distinct(all().filter(|it| flow_words::race(&it.to) == Some(race)));
+    let critical: Vec<&Transition> = of(Race::Critical);
     let alone = |to: &Reached| matches!(to, Reached::Exact { states, cycles: 1.., .. } if states.is_empty());
     let endless: Vec<&Transition> = distinct(all().filter(|it| alone(&it.to)));
     let bound = |to: &Reached| matches!(to, Reached::Bound { .. }) && to.only().is_none();
@@ -161,7 +161,7 @@ pub(super) fn dynamics(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     some(paper, Tone::Bad, "Critical races, the delays decide", &critical);
     some(paper, Tone::Bad, "Oscillates for certain", &endless);
     some(paper, Tone::Unsure, "Known only by a bound (ternary)", &unknown);
-    let harmless = is(Race::NonCritical);
+    let harmless = of(Race::NonCritical).len() as u64;
     match (critical.is_empty(), harmless) {
         (true, 0) if endless.is_empty() && unknown.is_empty() => {
             let exact = all().all(|it| matches!(it.to, Reached::Exact { .. }));
@@ -236,6 +236,11 @@ fn hazards(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     }
     if groups.is_empty() && !flow.hazards_truncated && flow.hazards_not_judged == 0 {
         paper.item(Tone::Plain, "No static or dynamic hazard of watched nets or feedback nets.");
+    }
+    if !scenario.circuit.feedback().is_empty() {
+        let text = "Hazards are those of the logic while the feedback nets are as they were; glitches that their own change \
+                    makes are for the sweep to see.";
+        paper.say(2, Tone::Plain, text);
     }
 }
 
