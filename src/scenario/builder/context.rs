@@ -23,7 +23,6 @@ pub(super) struct Context<'a> {
     pub faults: Faults,
     pub notes: Vec<Said<String>>,
     pub not_analysed: Vec<Said<String>>,
-    pub cannot_run: bool,
     comparisons: Comparisons,
 }
 
@@ -43,7 +42,6 @@ impl<'a> Context<'a> {
             faults,
             notes: Vec::new(),
             not_analysed: Vec::new(),
-            cannot_run: false,
             comparisons: Comparisons::default(),
         }
     }
