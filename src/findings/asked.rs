@@ -8,7 +8,8 @@ use crate::circuit::{Circuit, NetId, NetSet};
 use crate::control::Control;
 use crate::flow::Allowed;
 use crate::scenario::{
-    Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Place, Scenario, Stimulus, Swallowed,
+    Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Place, Scenario, Stimulus,
+    Swallowed,
 };
 use crate::time::Span;
 

@@ -36,14 +36,7 @@ pub(super) enum Least {
 
 impl<'a> Context<'a> {
     pub fn new(nets: Nets<'a>, unit: Unit, faults: Faults) -> Context<'a> {
-        Context {
-            nets,
-            unit,
-            faults,
-            notes: Vec::new(),
-            not_analysed: Vec::new(),
-            comparisons: Comparisons::default(),
-        }
+        Context { nets, unit, faults, notes: Vec::new(), not_analysed: Vec::new(), comparisons: Comparisons::default() }
     }
 
     pub fn note(&mut self, mark: Mark, note: impl Into<String>) {
