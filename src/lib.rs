@@ -40,7 +40,7 @@
 //! let scenario = stillgate::reader::read(text, "latch.toml").unwrap().scenario;
 //!
 //! // without delays: three input vectors have one stable state, one has two
-//! let states = review::states(&scenario.circuit, &Control::default());
+//! let states = review::states(&scenario, &Control::default()).unwrap();
 //! assert_eq!(states.count.as_deref(), Some("5"));
 //!
 //! // with delays: 200 draws of them

@@ -20,10 +20,11 @@ use crate::support::random_worlds::{Case, Filters, Kind as Worlds, Lengths, PLAI
 use crate::support::slow_judge::{self, Answer, Found, Log, Said};
 
 /// The rules that one run alone can break.
-const RULES: [&str; 11] = [
+const RULES: [&str; 12] = [
     "never",
     "never_at_rest",
     "expect",
+    "reference",
     "oscillation",
     "glitch_free",
     "edges",
@@ -218,6 +219,15 @@ fn wires_filters_and_clocks() {
     assert!(met.broken["min_pulse"] > 500 && met.not_judged["cut"] > 1000, "{met:#?}");
     let met = agree(2000, Worlds { delays: Lengths::Ties, hazards: true, clocks: true, gates: (1, 4), ..kind });
     assert!(met.broken["glitch_free"] > 50 && met.facts["glitch"] > 200, "{met:#?}");
+}
+
+#[test]
+fn hands_and_partners() {
+    let kind = Worlds { hands: 0.35, steps: (3, 8), ..PLAIN };
+    let met = agree(2500, kind);
+    assert!(met.broken["when"] > 300 && met.judged["when"] > 1000 && met.not_judged["not reached"] > 1000, "{met:#?}");
+    let met = agree(1000, Worlds { filters: Filters::All, delays: Lengths::Short, clocks: true, ..kind });
+    assert!(met.broken["when"] > 50 && met.judged["when"] > 200, "{met:#?}");
 }
 
 #[test]

@@ -3,14 +3,19 @@
 #![allow(clippy::unwrap_used)] // a helper that fails is a test that fails
 
 mod commands;
+mod coverage;
 mod demonstrations;
 mod draws;
 mod engine_agrees;
 mod engine_properties;
+mod essential;
 mod golden;
+mod hands_and_partners;
 mod judges_agree;
 mod malformed;
+mod outcomes_agree;
 mod outside;
 mod support;
 mod sweeps_agree;
 mod verdicts;
+mod views_agree;

@@ -19,12 +19,18 @@ pub struct Expr {
 
 /// One step of a stack machine, in postfix order.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
-enum Op {
+pub enum Op {
+    /// A constant.
     Const(bool),
+    /// A pin, by its number in [`Expr::nets`].
     Pin(u8),
+    /// The inverse of the last operand.
     Not,
+    /// Both of the last two.
     And,
+    /// One of the last two.
     Xor,
+    /// At least one of the last two.
     Or,
 }
 
@@ -73,6 +79,11 @@ impl Expr {
     /// Does a net occur more than once?
     pub fn repeats(&self) -> bool {
         self.repeats
+    }
+
+    /// Operands and operators in postfix order: every operator stands behind its operands.
+    pub fn code(&self) -> &[Op] {
+        &self.code
     }
 
     /// The value for these pins. Panics if there are fewer than [`Expr::nets`].

@@ -5,14 +5,16 @@
 mod compiled;
 mod expr;
 mod function;
+mod strongly;
 mod topology;
 
 use rustc_hash::FxHashMap;
 use serde::{Deserialize, Serialize};
 
 pub use compiled::Compiled;
-pub use expr::{Expr, ExprError, MAX_EXPR_NETS};
+pub use expr::{Expr, ExprError, MAX_EXPR_NETS, Op};
 pub use function::{Arity, Function};
+pub(crate) use strongly::strong_components;
 pub use topology::NetSet;
 use topology::Topology;
 

@@ -1,6 +1,6 @@
 //! Loops, feedback nets, blocks and an evaluation order, all in linear or nearly linear time and without recursion.
 
-use super::{GateId, NetId, Reader};
+use super::{GateId, NetId, Reader, strong_components};
 use crate::logic::Bits;
 
 /// A set of nets of one circuit.
@@ -81,52 +81,12 @@ impl Topology {
     }
 }
 
-/// Strongly connected components (Tarjan 1972), iterative. Returns the component of each gate and their sizes.
+/// The strongly connected component of each gate, and their sizes.
 fn components(reads: &[Vec<u32>]) -> (Vec<u32>, Vec<u32>) {
-    const UNSEEN: u32 = u32::MAX;
-    let n = reads.len();
-    let (mut index, mut low) = (vec![UNSEEN; n], vec![0u32; n]);
-    let (mut component, mut sizes) = (vec![UNSEEN; n], Vec::new());
-    let (mut stack, mut walk, mut next) = (Vec::new(), Vec::new(), 0u32);
-    for root in 0..n {
-        if index[root] != UNSEEN {
-            continue;
-        }
-        walk.push((root as u32, 0usize));
-        while let Some(&mut (g, ref mut edge)) = walk.last_mut() {
-            let gate = g as usize;
-            if *edge == 0 {
-                index[gate] = next;
-                low[gate] = next;
-                next += 1;
-                stack.push(g);
-            }
-            if let Some(&to) = reads[gate].get(*edge) {
-                *edge += 1;
-                let to_gate = to as usize;
-                if index[to_gate] == UNSEEN {
-                    walk.push((to, 0));
-                } else if component[to_gate] == UNSEEN {
-                    low[gate] = low[gate].min(index[to_gate]);
-                }
-                continue;
-            }
-            walk.pop();
-            if let Some(&(parent, _)) = walk.last() {
-                low[parent as usize] = low[parent as usize].min(low[gate]);
-            }
-            if low[gate] == index[gate] {
-                let mut size = 0;
-                while let Some(member) = stack.pop() {
-                    component[member as usize] = sizes.len() as u32;
-                    size += 1;
-                    if member == g {
-                        break;
-                    }
-                }
-                sizes.push(size);
-            }
-        }
+    let (mut component, mut sizes) = (vec![0; reads.len()], Vec::new());
+    for group in strong_components(reads.len(), |gate| &reads[gate as usize]).groups() {
+        group.iter().for_each(|gate| component[*gate as usize] = sizes.len() as u32);
+        sizes.push(group.len() as u32);
     }
     (component, sizes)
 }

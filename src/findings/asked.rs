@@ -1,10 +1,15 @@
 //! Everything that a scenario asks, as numbered questions: one for each rule pattern or net, and step.
 
+use std::sync::Arc;
+
 use rustc_hash::FxHashMap;
 
 use crate::circuit::{Circuit, NetId, NetSet};
+use crate::control::Control;
+use crate::flow::Allowed;
 use crate::scenario::{
-    Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Scenario, Stimulus, Swallowed,
+    Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Place, Scenario, Stimulus,
+    Swallowed,
 };
 use crate::time::Span;
 
@@ -27,6 +32,8 @@ pub enum RuleKey {
     GlitchFree,
     /// `edges` of a step
     Edges,
+    /// `when` of a step: does its pattern come?
+    When,
     /// `[[rules.timing]]`
     Timing,
     /// `min_pulse`
@@ -51,6 +58,7 @@ impl RuleKey {
             RuleKey::Oscillation => "oscillation",
             RuleKey::GlitchFree => "glitch_free",
             RuleKey::Edges => "edges",
+            RuleKey::When => "when",
             RuleKey::Timing => "timing",
             RuleKey::MinPulse => "min_pulse",
             RuleKey::SettleWithin => "settle_within",
@@ -121,6 +129,8 @@ pub struct Question {
 pub struct Asked {
     /// The questions, by number.
     pub questions: Vec<Question>,
+    /// Who knows what the reference allows, if there is one; shared by all judges.
+    pub allowed: Option<Arc<Allowed>>,
     /// The number of each question by what is asked.
     numbers: FxHashMap<Key, u32>,
 }
@@ -184,6 +194,10 @@ impl Asked {
             if let Some(expect) = &step.expect {
                 let pattern = Some(Pattern::OneOf(expect.clone()));
                 questions.push(Question { pattern, moment, ..plain(RuleKey::Expect) });
+            }
+            if let Place::When { pattern, timeout, .. } = &step.place {
+                let (pattern, bound) = (Some(Pattern::State(pattern.clone())), *timeout);
+                questions.push(Question { pattern, moment, bound, ..plain(RuleKey::When) });
             }
             for count in &step.edges {
                 let (pattern, net) = (Some(Pattern::Count(*count)), Some(count.net));
@@ -277,7 +291,8 @@ impl Asked {
         }
         let key = |q: &Question| (q.rule, q.index, q.net, q.moment);
         let numbers = questions.iter().enumerate().map(|(i, q)| (key(q), i as u32)).collect();
-        Asked { questions, numbers }
+        let allowed = |reference| Arc::new(Allowed::of(reference, &Control::default()));
+        Asked { questions, allowed: scenario.reference.clone().map(allowed), numbers }
     }
 
     /// The number of the question with these marks.

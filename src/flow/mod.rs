@@ -3,9 +3,40 @@
 //! compares with the reference network.
 //!
 //! Everything is said of the circuit alone: a hazard is the ability to glitch, not a glitch that was seen.
+//!
+//! Outcomes come from the multiple-winner method where it holds: every gate is inertial, no wire has a delay of its own,
+//! and the contacts of the step do not bounce. Elsewhere a pulse may arrive after its cause is over, so that the method is
+//! no bound; there, and where it takes more than its budget, outcomes are bounded by ternary simulation, which is never
+//! optimistic. Every step is taken to come at rest.
+
+mod automaton;
+mod classes;
+mod compared;
+mod coverage;
+mod cures;
+mod follow;
+mod hazards;
+mod lay_out;
+mod outcomes;
+mod reference;
+mod table;
+#[cfg(test)]
+mod tests;
+mod timeline;
+mod tour;
+
+pub use compared::compared;
+pub use follow::{follow, outside, winners_are_valid};
+pub use hazards::{Hazards, MAX_CHANGING, hazards};
+pub use lay_out::lay_out;
+pub use reference::{Allowed, Answer, Coming, List, Passed, View};
+pub use timeline::{Group, Timeline};
+pub use tour::{Tour, tour};
 
 use crate::circuit::NetId;
+use crate::control::Control;
 use crate::logic::{Bits, Shape, State};
+use crate::scenario::Scenario;
 use crate::statics::{Change, Race};
 
 /// A stable state of a flow table, by its number there.
@@ -15,7 +46,7 @@ pub type StateNumber = u32;
 #[derive(Clone, Debug, Default)]
 pub struct FlowTable {
     /// The stable states looked at. Those that can be reached from the start come first, in the order in which they were
-    /// found; then the others, by input vector.
+    /// found; then the others, by input vector (where a limit cut these, what is found from them comes last).
     pub states: Vec<FlowState>,
     /// The states in which a run may begin: one at rest; after power-up all with these inputs.
     pub start: Vec<StateNumber>,
@@ -53,10 +84,12 @@ pub struct Transition {
     pub change: Change,
     /// What may follow.
     pub to: Reached,
-    /// Does Unger's test find an essential hazard: does one change of the input lead to another state than three? `None`
-    /// where the method does not say, or more than one input changes.
+    /// Does Unger's test find an essential hazard: in the flow table in which only the feedback nets take time, does one
+    /// change of the input lead to another state than three, each outcome unique? `None` where only a bound is known, the
+    /// test takes more than its effort, or not just one input changes.
     pub essential: Option<bool>,
-    /// For steps: is it sure that the step meets this state? Not after a race, an oscillation or a ternary bound.
+    /// For steps: is it sure that the step meets this state? Not after power-up, a race, an oscillation or a ternary bound,
+    /// until a step leads to one state from all that may be (by ternary simulation, or because each outcome is unique).
     pub sure: bool,
 }
 
@@ -121,7 +154,7 @@ pub struct Coverage {
 }
 
 /// The circuit read as an automaton.
-#[derive(Clone, Debug, PartialEq, Eq)]
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
 pub struct Automaton {
     /// How its outputs depend on its state.
     pub reading: Reading,
@@ -138,9 +171,10 @@ pub struct Automaton {
 }
 
 /// How outputs depend on the state, over the reachable stable states.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub enum Reading {
     /// There are no state variables: the outputs follow the inputs alone.
+    #[default]
     Combinational,
     /// The outputs are a function of the state variables.
     Moore,
@@ -148,25 +182,31 @@ pub enum Reading {
     Mealy(StateNumber, StateNumber),
 }
 
-/// The ability to glitch: a net that may change more often than it must.
+/// The ability to glitch: a net that may change more often than it must, while feedback nets hold their values.
+///
+/// There is one for each net, shape, cause and change: a step, or one input in one direction. Where the states need
+/// different cures, there is one for each cure.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Hazard {
     /// The net: watched, or a feedback net (what is wanted of it, before it moves).
     pub net: NetId,
-    /// What could be seen.
+    /// What could be seen, before any feedback net moves.
     pub shape: Shape,
     /// Function or logic.
     pub cause: Cause,
+    /// Only if the expressions and multiplexers on the way are built of several gates, one for each operator; as one gate
+    /// each, they do not show it.
+    pub built: bool,
     /// The moment of the scenario; `None` for single-input changes.
     pub moment: Option<u32>,
     /// The first state, in the order of the table, that has it.
     pub from: StateNumber,
-    /// The inputs that change.
+    /// The inputs that change, with their new values. A single-input change and its opposite are two hazards.
     pub change: Change,
-    /// From how many states of the table (for a step: that it can meet) this change, or its opposite for single-input
-    /// changes, has it.
+    /// From how many states of the table (for a step: that it can meet) this change has it.
     pub states: u64,
-    /// How to be rid of it, verified; only for static logic hazards.
+    /// How to be rid of it from all these states, verified; only for static logic hazards, and only if it brings no new
+    /// hazard of the net for any change of the table.
     pub cure: Option<Cure>,
 }
 
@@ -195,7 +235,7 @@ pub struct Cure {
     /// The literals, in net order: nets with the value at which the literal is true in a product (static-1), false in a
     /// sum (static-0).
     pub literals: Vec<(NetId, bool)>,
-    /// The whole new function as an expression, as in `(p | q) | b & c`.
+    /// The whole new function of the net's gate as an expression of a scenario, as in `p | q | b & c`.
     pub expression: String,
 }
 
@@ -256,7 +296,7 @@ pub struct Choice {
 }
 
 /// Everything that is known of a scenario without delays, beside its state set.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, Default)]
 pub struct Flow {
     /// The flow table.
     pub table: FlowTable,
@@ -264,8 +304,65 @@ pub struct Flow {
     pub coverage: Coverage,
     /// The circuit as an automaton.
     pub automaton: Automaton,
-    /// Hazards: of the steps first, then of single-input changes; by net.
+    /// Hazards: of the steps first, by moment, then of single-input changes; by net.
     pub hazards: Vec<Hazard>,
+    /// A limit cut the search for hazards or for their cures: there may be more.
+    pub hazards_truncated: bool,
+    /// Nets and changes, once for each state, of which nothing is known: too many inputs change at once to tell function
+    /// from logic, or too many changes to count.
+    pub hazards_not_judged: u64,
     /// Against the reference, if there is one.
     pub compared: Option<Compared>,
+}
+
+/// Why there is no delay-free view.
+#[derive(Clone, Debug, PartialEq, Eq, thiserror::Error)]
+pub enum FlowError {
+    /// Two methods contradict each other: a defect of the program.
+    #[error("{0}")]
+    Contradiction(String),
+    /// The caller asked to stop.
+    #[error("interrupted")]
+    Cancelled,
+}
+
+/// The delay-free view of a scenario; `state_variables` are those of its
+/// [`StateSet`](crate::statics::StateSet::state_variables), or other nets that determine the state (feedback nets).
+///
+/// ```
+/// use stillgate::control::Control;
+/// use stillgate::flow::flow;
+///
+/// let text = r#"
+/// outputs = ["c"]
+/// [inputs]
+/// a = 0
+/// b = 0
+/// [gates]
+/// c = { majority = ["a", "b", "c"] }
+/// [[steps]]
+/// set = { a = 1 }
+/// [[steps]]
+/// set = { b = 1 }
+/// "#;
+/// let scenario = stillgate::reader::read(text, "c-element.toml").unwrap().scenario;
+/// let c = scenario.circuit.net("c").unwrap();
+/// let flow = flow(&scenario, &[c], &Control::default()).unwrap();
+/// // c follows where a and b agree, and holds where they do not
+/// assert_eq!(flow.table.states.len(), 6);
+/// assert_eq!((flow.coverage.exercised, flow.coverage.all), (2, 12));
+/// ```
+///
+/// Errors: see [`FlowError`].
+pub fn flow(scenario: &Scenario, state_variables: &[NetId], control: &Control) -> Result<Flow, FlowError> {
+    let table = table::table(scenario, table::Limits::default(), control)?;
+    let coverage = Coverage::of(&table);
+    let automaton = Automaton::of(scenario, &table, state_variables);
+    let found = hazards(&scenario.circuit, &scenario.watched, &table, control)?;
+    let (hazards, hazards_truncated, hazards_not_judged) = (found.list, found.truncated, found.not_judged);
+    let compared = match &scenario.reference {
+        Some(reference) => Some(compared(scenario, &Allowed::of(reference.clone(), control), &table, control)?),
+        None => None,
+    };
+    Ok(Flow { table, coverage, automaton, hazards, hazards_truncated, hazards_not_judged, compared })
 }

@@ -1,9 +1,8 @@
 //! Results as CSV. Units stand in the headers; what is missing is an empty field, never 0; the order is fixed.
 
 use crate::findings::{Asked, Reason};
-use crate::logic::Bits;
 use crate::output::words::{self, six};
-use crate::review::StatesReport;
+use crate::review::departure_words;
 use crate::scenario::Scenario;
 use crate::sweep::{SweepReport, Worst};
 use crate::time::Decimal;
@@ -26,7 +25,7 @@ fn name(field: Option<&str>) -> String {
     field.unwrap_or_default().to_string()
 }
 
-fn yes_no(yes: bool) -> String {
+pub(super) fn yes_no(yes: bool) -> String {
     if yes { "yes" } else { "no" }.to_string()
 }
 
@@ -57,7 +56,8 @@ pub fn outcomes(scenario: &Scenario, report: &SweepReport) -> String {
 }
 
 /// Findings, worst first, with the keys of the JSON as columns. `worst` has two columns, one for times and one for shares
-/// of a delay.
+/// of a delay. What departed from the reference has the states of its first sample, all nets, and the compared nets that
+/// the reference allows.
 pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
     let unit = scenario.unit;
     write(|to| {
@@ -82,6 +82,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
             "tie",
             "sample",
             "worst_sample",
+            "reference: before",
+            "reference: reached",
+            "reference: allowed",
         ])?;
         for finding in &report.findings {
             let named = words::subject(scenario, asked, &finding.subject);
@@ -91,6 +94,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
                 Some(Worst::Share(share)) => (String::new(), six(share).to_string()),
                 None => (String::new(), String::new()),
             };
+            let against = finding.against.as_ref().map(|it| departure_words(scenario, it, true));
+            let (before, reached, allowed) =
+                against.map_or_else(Default::default, |it| (it.before.unwrap_or_default(), it.reached, it.allowed));
             to.write_record([
                 named.kind.to_string(),
                 name(named.shape),
@@ -112,6 +118,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
                 name(finding.tie.map(words::tie)),
                 or_empty(finding.sample),
                 or_empty(finding.worst_sample),
+                before,
+                reached,
+                allowed,
             ])?;
         }
         Ok(())
@@ -149,34 +158,6 @@ pub fn rules(scenario: &Scenario, report: &SweepReport) -> String {
             row.push(or_empty(rule.margin.map(|fs| Decimal::new(fs, unit))));
             row.push(or_empty(rule.margin_sample));
             to.write_record(&row)?;
-        }
-        Ok(())
-    })
-}
-
-/// Stable states: one row a stable state, by input vector; an input vector without any has one row with empty gates.
-///
-/// Columns: states (how many the input vector has), then the nets in net order. A list that a limit cut ends early; the
-/// text and the JSON say so.
-pub fn states(scenario: &Scenario, report: &StatesReport) -> String {
-    let circuit = &scenario.circuit;
-    write(|to| {
-        to.write_record(std::iter::once("states").chain(circuit.nets().map(|net| circuit.name(net))))?;
-        for (inputs, states) in &report.inputs {
-            let mut row = |gate: &dyn Fn(usize) -> String| {
-                let values = circuit.nets().map(|net| match inputs.get(net.index()) {
-                    Some(bit) => u8::from(*bit).to_string(),
-                    None => gate(net.index()),
-                });
-                to.write_record(std::iter::once(states.len().to_string()).chain(values))
-            };
-            if states.is_empty() {
-                row(&|_| String::new())?;
-            }
-            for state in states {
-                let state: &Bits = state;
-                row(&|net| u8::from(state.get(net)).to_string())?;
-            }
         }
         Ok(())
     })

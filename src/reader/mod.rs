@@ -95,7 +95,7 @@ pub fn read(text: &str, name: &str) -> Result<Loaded, Diagnostics> {
     let start = walk.mark(said.unwrap_or(0..0));
     builder.faults(walk.faults);
     let checked = builder.finish().and_then(|scenario| match start::check(&scenario, start) {
-        None => Ok(scenario),
+        None => steps::lay_out(scenario),
         Some(fault) => Err(vec![fault]),
     });
     match checked {
@@ -108,7 +108,7 @@ fn stem(name: &str) -> String {
     Path::new(name).file_stem().map_or_else(|| name.to_string(), |stem| stem.to_string_lossy().into_owned())
 }
 
-const KEYS: [&str; 15] = [
+const KEYS: [&str; 16] = [
     "title",
     "time_unit",
     "outputs",
@@ -119,6 +119,7 @@ const KEYS: [&str; 15] = [
     "delays",
     "groups",
     "steps",
+    "stimulus",
     "clocks",
     "rules",
     "reference",
@@ -127,7 +128,7 @@ const KEYS: [&str; 15] = [
 ];
 
 /// Keys that later versions will read; until then they are named in every result.
-const RESERVED: [&str; 7] = ["cells", "parts", "split", "conditions", "padding", "plot", "stimulus"];
+const RESERVED: [&str; 6] = ["cells", "parts", "split", "conditions", "padding", "plot"];
 
 fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) {
     for (key, value) in table.iter() {
@@ -169,6 +170,7 @@ fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) {
             "delays" => gates::delays(walk, builder, value),
             "groups" => gates::groups(walk, builder, value),
             "steps" => steps::steps(walk, builder, value),
+            "stimulus" => steps::stimulus(walk, builder, value),
             "clocks" => steps::clocks(walk, builder, value),
             "rules" => rules::rules(walk, builder.rules(), value),
             "reference" => gates::reference(walk, builder, value),

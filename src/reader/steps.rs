@@ -5,7 +5,10 @@ use std::ops::Range;
 use toml::de::{DeTable, DeValue};
 
 use super::walk::{Value, Walk};
-use crate::scenario::{Builder, NewBounce, NewClock, NewPlace, NewState, NewStep, Oscillation, Said};
+use crate::control::Control;
+use crate::flow;
+use crate::scenario::Walk as Steps;
+use crate::scenario::{Builder, Fault, NewBounce, NewClock, NewPlace, NewState, NewStep, Oscillation, Said, Scenario};
 
 const STEP_KEYS: [&str; 16] = [
     "label",
@@ -206,6 +209,26 @@ fn bounce(walk: &mut Walk, value: &Value<'_>) -> Option<NewBounce> {
         walk.missing(value.span(), "pulses", "this bounce", "[0, 6]");
     }
     Some(NewBounce { lasting: lasting.flatten()?, pulses: pulses.flatten()? })
+}
+
+/// What takes the place of steps: a word, or (later) a table that names a file of changes.
+pub(super) fn stimulus(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
+    let mark = walk.mark(value.span());
+    if value.get_ref().is_table() {
+        let sentence = "`stimulus` as a table: not analysed yet; it has no effect".to_string();
+        builder.not_analysed(Said::at(sentence, mark));
+    } else if walk.word(value, &[("every single change", ())]).is_some() {
+        builder.every_single_change(mark);
+    }
+}
+
+/// Adds the steps that `stimulus` stands for.
+pub(super) fn lay_out(scenario: Scenario) -> Result<Scenario, Vec<Fault>> {
+    let Steps::ToLayOut { mark, .. } = scenario.stimulus.walk else { return Ok(scenario) };
+    flow::lay_out(scenario, &Control::default()).map_err(|error| {
+        let message = format!("the changes cannot be walked: {error}");
+        vec![Fault::new(mark, message, "write steps in its place, and report this with the file")]
+    })
 }
 
 pub(super) fn clocks(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {

@@ -1,12 +1,15 @@
 //! The views put together: runs, states and sweep of one scenario, the checks of the views against each other, and the
 //! verdict. Plain data; nothing is drawn here.
 
+mod contained;
+mod departure;
 mod report;
 mod single;
 mod verdict;
 
 use std::collections::BTreeMap;
 
+pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
 pub use verdict::{grouped, verdict, with_typical};
@@ -15,6 +18,7 @@ use crate::circuit::NetId;
 use crate::control::Control;
 use crate::engine::Program;
 use crate::findings::{Asked, Kind, RuleKey};
+use crate::flow::FlowError;
 use crate::instance::Which;
 use crate::scenario::Scenario;
 use crate::statics;
@@ -34,8 +38,17 @@ pub enum ReviewError {
     Cancelled,
 }
 
+impl From<FlowError> for ReviewError {
+    fn from(error: FlowError) -> ReviewError {
+        match error {
+            FlowError::Contradiction(what) => ReviewError::Contradiction(what),
+            FlowError::Cancelled => ReviewError::Cancelled,
+        }
+    }
+}
+
 /// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
-/// settled state is a stable state. A cancelled sweep concludes from what was complete.
+/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows. A cancelled sweep concludes from what was complete.
 pub fn sweep(
     scenario: &Scenario,
     program: &Program,
@@ -43,8 +56,7 @@ pub fn sweep(
     threads: usize,
     control: &Control,
 ) -> Result<SweepReport, ReviewError> {
-    let samples = if scenario.cannot_run { 0 } else { scenario.plan.samples };
-    let tally = run_samples(scenario, program, asked, 0..samples, threads, control);
+    let tally = run_samples(scenario, program, asked, 0..scenario.plan.samples, threads, control);
     let report = conclude(scenario, asked, &tally);
     for window in &report.windows {
         for outcome in window.outcomes.iter().filter(|outcome| !outcome.state.has_unknown()) {
@@ -57,6 +69,7 @@ pub fn sweep(
             }
         }
     }
+    contained::sweep(scenario, &tally, &Control::default())?;
     Ok(report)
 }
 
@@ -70,11 +83,9 @@ pub fn review(
     control: &Control,
 ) -> Result<Review, ReviewError> {
     let asked = Asked::of(scenario);
-    let states = states(&scenario.circuit, control);
-    let typical = match scenario.cannot_run {
-        true => None,
-        false => Some(run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?),
-    };
+    let states = states(scenario, control)?;
+    let typical = run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?;
+    contained::run(scenario, "the typical run", &typical.trace, control)?;
     let sweep = sweep(scenario, program, &asked, threads, control)?;
     let mut shown = Vec::new();
     for index in to_show(&asked, &sweep) {
@@ -88,11 +99,8 @@ pub fn review(
         }
         shown.push((index, run));
     }
-    let mut verdict = verdict(scenario, &sweep);
-    if let Some(typical) = &typical {
-        verdict = with_typical(scenario, &sweep, typical, verdict);
-    }
-    Ok(Review { asked, states, typical, sweep, shown, verdict })
+    let verdict = with_typical(scenario, &sweep, &typical, verdict(scenario, &sweep));
+    Ok(Review { asked, states, typical: Some(typical), sweep, shown, verdict })
 }
 
 /// What makes findings alike: kind, rule and which of several, net.

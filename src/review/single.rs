@@ -1,13 +1,14 @@
 //! Single runs, and the delay-free view.
 
+use super::ReviewError;
 use super::report::{RunReport, StatesReport};
-use crate::circuit::Circuit;
 use crate::control::Control;
 use crate::engine::{Program, Trace};
 use crate::findings::{Answers, Asked, Judge};
+use crate::flow::{Flow, flow};
 use crate::instance::{Instance, Which};
 use crate::scenario::Scenario;
-use crate::statics::StateSet;
+use crate::statics::{GaveUp, StateSet};
 
 /// Input vectors whose stable states are listed, at most.
 const VECTORS: usize = 1024;
@@ -15,8 +16,9 @@ const VECTORS: usize = 1024;
 const VALUES: usize = 1 << 20;
 /// Stable states listed for one input vector.
 const STATES: usize = 64;
-/// Rows of the state set that are listed.
+/// Rows of the state set that are listed, and values in all of them.
 const ROWS: usize = 4096;
+const ROW_VALUES: usize = 1 << 18;
 /// Stable states looked at to find the fewest state variables.
 const LOOKED_AT: usize = 1 << 16;
 
@@ -34,14 +36,19 @@ pub fn run_one(
         return None;
     }
     let (trace, judge) = observers;
-    let Answers { mut facts, judged, mut not_judged } = judge.sink;
+    let Answers { mut facts, judged, mut not_judged, departures } = judge.sink;
     not_judged.sort_unstable();
     facts.sort_by_key(|fact| (!fact.breaks_rule, fact.subject.kind, std::cmp::Reverse(fact.measure), fact.subject));
-    Some(RunReport { which, instance, trace, facts, judged, not_judged })
+    let allowed = asked.allowed.iter();
+    let against = allowed.flat_map(|allowed| departures.iter().map(|it| it.against(allowed))).collect();
+    Some(RunReport { which, instance, trace, facts, judged, not_judged, against })
 }
 
-/// All stable states of a circuit. What a budget or limit cuts is said in the report.
-pub fn states(circuit: &Circuit, control: &Control) -> StatesReport {
+/// All stable states of a circuit, and what may follow what. What a budget or limit cuts is said in the report.
+///
+/// Errors: two delay-free methods contradict each other, or the caller asked to stop.
+pub fn states(scenario: &Scenario, control: &Control) -> Result<StatesReport, ReviewError> {
+    let circuit = &*scenario.circuit;
     let mut report = StatesReport {
         count: None,
         feedback: circuit.feedback().to_vec(),
@@ -53,16 +60,35 @@ pub fn states(circuit: &Circuit, control: &Control) -> StatesReport {
         inputs: Vec::new(),
         inputs_truncated: true,
         vectors: None,
+        flow: Flow::default(),
     };
-    let Ok(set) = StateSet::of(circuit, control) else { return report };
+    // where they are not known, feedback nets tell the states apart as well
+    let mut variables = circuit.feedback().to_vec();
+    match StateSet::of(circuit, control) {
+        Ok(set) => {
+            list(&set, circuit.net_count(), &mut report);
+            if let Ok(found) = set.state_variables(LOOKED_AT) {
+                variables.clone_from(&found.nets);
+                (report.state_variables, report.state_variables_exact) = (found.nets, found.exact);
+            }
+        }
+        Err(GaveUp::Cancelled) => return Err(ReviewError::Cancelled),
+        Err(GaveUp::Budget { .. }) => {}
+    }
+    report.flow = flow(scenario, &variables, control)?;
+    Ok(report)
+}
+
+/// Counts and lists the states of a set, each list as far as its limit goes.
+fn list(set: &StateSet<'_>, nets: usize, report: &mut StatesReport) {
     report.count = Some(set.count().to_string());
-    let rows = set.rows(ROWS);
+    let rows = set.rows(ROWS.min(ROW_VALUES / set.variables().len().max(1)).max(1));
     (report.rows, report.rows_truncated) = (rows.rows, rows.truncated);
     let mut left = VALUES;
     let mut vectors = set.by_inputs(VECTORS, STATES);
     report.inputs_truncated = vectors.truncated();
     for vector in &mut vectors {
-        let values = vector.states.len().max(1) * circuit.net_count();
+        let values = vector.states.len().max(1) * nets;
         report.inputs_truncated |= vector.truncated || values > left;
         if values > left {
             break;
@@ -73,8 +99,4 @@ pub fn states(circuit: &Circuit, control: &Control) -> StatesReport {
     if let Ok(counts) = set.vector_counts() {
         report.vectors = Some([counts.none.to_string(), counts.one.to_string(), counts.several.to_string()]);
     }
-    if let Ok(variables) = set.state_variables(LOOKED_AT) {
-        (report.state_variables, report.state_variables_exact) = (variables.nets, variables.exact);
-    }
-    report
 }

@@ -2,10 +2,11 @@
 
 use std::collections::BTreeMap;
 
+use super::departure::departure_words;
 use super::report::{Call, RunReport, Verdict};
 use crate::circuit::NetId;
 use crate::delay::Marginal;
-use crate::findings::{Fact, Kind, Question, Reason, RuleKey, Subject};
+use crate::findings::{Against, Fact, Kind, Question, Reason, RuleKey, Subject};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, SweepReport};
 
@@ -42,7 +43,7 @@ pub fn with_typical(scenario: &Scenario, sweep: &SweepReport, typical: &RunRepor
     let drawn = |fact: &Fact| sweep.findings.iter().any(|it| it.subject == fact.subject && it.breaks_rule);
     let only = typical.facts.iter().filter(|fact| fact.breaks_rule && !drawn(fact)).map(|fact| {
         let rule = fact.subject.question.and_then(|q| sweep.rules.get(q as usize));
-        let what = what(scenario, &fact.subject, rule.map(|rule| &rule.question));
+        let what = what(scenario, &fact.subject, rule.map(|rule| &rule.question), typical.against(fact));
         format!("with typical delays, but in no draw: {what} (exactly equal delays?)")
     });
     let only: Vec<String> = only.collect();
@@ -113,7 +114,7 @@ fn broken(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
 }
 
 fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -> String {
-    let what = what(scenario, &finding.subject, rule.map(|rule| &rule.question));
+    let what = what(scenario, &finding.subject, rule.map(|rule| &rule.question), finding.against.as_ref());
     // a rule for the whole run may break after several steps: its share is that of the rule
     match rule.filter(|rule| rule.question.moment.is_none() && rule.broken > finding.count) {
         Some(rule) => {
@@ -124,7 +125,7 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
 }
 
 /// What was found, where, after which step.
-fn what(scenario: &Scenario, subject: &Subject, question: Option<&Question>) -> String {
+fn what(scenario: &Scenario, subject: &Subject, question: Option<&Question>, against: Option<&Against>) -> String {
     let circuit = &scenario.circuit;
     let what = match (question.and_then(|q| q.name.as_ref()), subject.shape) {
         (Some(name), _) => format!("\"{name}\" ({})", subject.kind.word()),
@@ -145,7 +146,11 @@ fn what(scenario: &Scenario, subject: &Subject, question: Option<&Question>) -> 
         Some(moment) => format!(" after \"{}\"", scenario.stimulus.moments[moment as usize].label),
         None => String::new(),
     };
-    format!("{what}{net}{step}")
+    let against = against.map_or_else(String::new, |against| {
+        let words = departure_words(scenario, against, false);
+        format!(" (rests at {}, the reference allows {})", words.reached, words.allowed)
+    });
+    format!("{what}{net}{step}{against}")
 }
 
 /// Questions that belong together: a rule, which of several, its net, and the step if it is a clause of its own.
@@ -156,7 +161,7 @@ fn own_clause(scenario: &Scenario, question: &Question) -> Option<u32> {
     let moment = question.moment?;
     let step = scenario.stimulus.step_of(&scenario.stimulus.moments[moment as usize])?;
     let own = match question.rule {
-        RuleKey::Expect | RuleKey::Edges => true,
+        RuleKey::Expect | RuleKey::Edges | RuleKey::When => true,
         RuleKey::SettleWithin => step.settle_within.is_some(),
         RuleKey::Oscillation => step.oscillation.is_some(),
         _ => false,
@@ -167,9 +172,7 @@ fn own_clause(scenario: &Scenario, question: &Question) -> Option<u32> {
 /// Why the verdict cannot be better than undecided, whatever else was found.
 fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
     let mut reasons = Vec::new();
-    if scenario.cannot_run {
-        reasons.push("the circuit has gates whose filter is not analysed yet; nothing was run".to_string());
-    } else if scenario.stimulus.moments.is_empty() {
+    if scenario.stimulus.moments.is_empty() {
         reasons.push("there is no step and no clock, so nothing was asked of the block in motion".to_string());
     }
     reasons.extend(scenario.not_analysed.iter().cloned());
@@ -209,7 +212,7 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
                 .map(|(reason, count)| format!("{} in up to {} draws", reason.words(), grouped(*count)))
                 .collect();
             reasons.push(format!("{what} not judged: {}", each.join(", ")));
-        } else if *judged == 0 && *written && !scenario.cannot_run {
+        } else if *judged == 0 && *written {
             reasons.push(format!("{what} was never put to the test"));
         }
     }

@@ -16,6 +16,26 @@ pub struct Stimulus {
     pub clocks: Vec<Clock>,
     /// Every moment at which a window can begin; see [`Moment`]. Filled by the builder.
     pub moments: Vec<Moment>,
+    /// Where the steps come from.
+    pub walk: Walk,
+}
+
+/// Where listed steps come from.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Walk {
+    /// They were written.
+    #[default]
+    Written,
+    /// They are to make every single-input change from every reachable stable state, and are still missing:
+    /// [`crate::flow::lay_out`] adds them, since they depend on what the circuit does.
+    ToLayOut {
+        /// How long after rest each comes.
+        rest: Span,
+        /// Where it was written.
+        mark: Mark,
+    },
+    /// They were laid out.
+    LaidOut,
 }
 
 /// A moment at which a window can begin, by number: power-up if there is one, then steps, then the edges of each clock.
@@ -130,6 +150,14 @@ impl Stimulus {
             MomentKind::Step(step) => self.steps[step as usize].set.iter().map(|(net, _)| *net).collect(),
             MomentKind::Edge { clock, .. } => vec![self.clocks[clock as usize].net],
         }
+    }
+
+    /// Adds a step with its moment, which comes after those of the other listed steps.
+    pub(crate) fn add_step(&mut self, step: Step) {
+        let kind = MomentKind::Step(self.steps.len() as u32);
+        let place = self.moment_of_step(self.steps.len() as u32) as usize;
+        self.moments.insert(place, Moment { label: step.label.clone(), kind });
+        self.steps.push(step);
     }
 
     /// The listed step of a moment.

@@ -1,13 +1,19 @@
 //! The delay-free view: where may a circuit rest at all?
 //!
 //! A stable state gives every net a value such that every gate's output equals its function. [`StateSet`] holds all of
-//! them, [`rest`] finds the one that fits given inputs, [`is_stable`] tests one, and [`ternary`] computes with X.
+//! them, [`rest`] finds the one that fits given inputs, [`stable_states`] lists those that agree with what is known,
+//! [`is_stable`] tests one, and [`ternary`] computes with X. [`transients`] counts how often a net may change.
 
+mod agreeing;
+pub mod built;
 mod change;
 mod conjunction;
 mod diagram;
+mod explore;
 mod fewest;
 mod functions;
+mod fundamental;
+mod inclusion;
 mod multiplicity;
 mod order;
 mod outcome;
@@ -18,10 +24,14 @@ mod rest;
 mod state_set;
 mod state_variables;
 pub mod ternary;
+pub mod transients;
 mod walk;
+mod winners;
 
+pub use agreeing::stable_states;
 pub use change::Change;
-pub use outcome::{Outcome, Race, bound, outcome};
+pub use fundamental::{Next, fundamental};
+pub use outcome::{Outcome, Race, bound, bound_restless, outcome, outcome_of_many};
 pub use product::Rows;
 pub use projection::Projection;
 pub use rest::{NoRest, rest};

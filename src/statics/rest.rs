@@ -72,20 +72,25 @@ pub fn rest(circuit: &Circuit, inputs: &[bool], named: &[(NetId, bool)], control
 }
 
 /// The stable states that agree with inputs and named nets.
-enum Fit {
+pub(super) enum Fit {
     None,
     One(Bits),
     Several(Box<Open>),
 }
 
 /// Several stable states: what is known of all of them, and the relation of the rest.
-struct Open {
+pub(super) struct Open {
     known: State,
     relation: Relation,
-    total: BigUint,
+    pub total: BigUint,
 }
 
-fn fit(circuit: &Circuit, inputs: &[bool], named: &[(NetId, bool)], control: &Control) -> Result<Fit, GaveUp> {
+pub(super) fn fit(
+    circuit: &Circuit,
+    inputs: &[bool],
+    named: &[(NetId, bool)],
+    control: &Control,
+) -> Result<Fit, GaveUp> {
     let mut known = unknown(circuit);
     let given = circuit.inputs().zip(inputs.iter().copied()).chain(named.iter().copied());
     for (net, bit) in given {
@@ -123,7 +128,7 @@ fn fit(circuit: &Circuit, inputs: &[bool], named: &[(NetId, bool)], control: &Co
 
 impl Open {
     /// The first stable states by their feedback nets, in lexicographic order.
-    fn states(&self, circuit: &Circuit, limit: usize) -> Vec<Bits> {
+    pub fn states(&self, circuit: &Circuit, limit: usize) -> Vec<Bits> {
         let product = &self.relation.product;
         let feedback: Vec<NetId> =
             circuit.feedback().iter().copied().filter(|net| self.relation.level(*net).is_some()).collect();

@@ -121,6 +121,7 @@ impl Case {
             steps: self.steps,
             clocks: Vec::new(),
             moments,
+            walk: Default::default(),
         };
         let outputs: Vec<NetId> =
             circuit.gates().map(|gate| circuit.net_of(gate)).filter(|net| circuit.readers(*net).is_empty()).collect();
@@ -139,7 +140,6 @@ impl Case {
             plan: Plan::default(),
             notes: Vec::new(),
             not_analysed: Vec::new(),
-            cannot_run: false,
         }
     }
 }
@@ -166,7 +166,7 @@ pub fn run(scenario: &Scenario, which: Which) -> RunReport {
     let mut trace = Trace::default();
     let program = Program::with_rest(scenario, &rest(scenario));
     assert!(program.machine().run(&instance, &Control::default(), &mut trace));
-    RunReport { which, instance, trace, facts: Vec::new(), judged: 1, not_judged: Vec::new() }
+    RunReport { which, instance, trace, facts: Vec::new(), judged: 1, not_judged: Vec::new(), against: Vec::new() }
 }
 
 pub fn net(scenario: &Scenario, name: &str) -> NetId {

@@ -10,6 +10,7 @@ use stillgate::sweep::{Boards, Finding, Outcome, RuleReport, Settling, SweepRepo
 use stillgate::time::Span;
 
 use super::cases::{self, ns};
+use super::flows;
 
 /// A state from letters in net order: `0`, `1`, `X`.
 pub fn state(letters: &str) -> State {
@@ -78,6 +79,7 @@ pub fn finding(kind: Kind, net: Option<NetId>, moment: u32, count: u64) -> Findi
         interval: Some((0.9 * count as f64 / 10_000.0, 1.1 * count as f64 / 10_000.0)),
         boards: None,
         worst: None,
+        against: None,
         tie: None,
         sample: Some(17),
         worst_sample: Some(8123),
@@ -171,6 +173,7 @@ pub fn states(scenario: &Scenario) -> StatesReport {
         ],
         inputs_truncated: false,
         vectors: Some(["0".into(), "3".into(), "1".into()]),
+        flow: flows::lock(scenario),
     }
 }
 

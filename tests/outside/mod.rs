@@ -2,7 +2,11 @@
 //! source. \[PAGE …\] marks a page on which the value was seen, \[computed\] a value from an independent throw-away
 //! program or by hand, "from memory" a source that was not at hand, "common practice, no source" a fact of the trade.
 
+mod eichelberger;
 mod engine;
+mod filters;
+mod flow_tables;
+mod hazards;
 mod hundreds_of_gates;
 mod large_networks;
 mod networks;
@@ -10,3 +14,4 @@ mod random_networks;
 mod small_networks;
 mod stable_states;
 mod statistics;
+mod words_of_nets;

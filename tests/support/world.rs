@@ -181,6 +181,7 @@ impl World {
             moments: self.moments(),
             steps,
             clocks,
+            walk: Default::default(),
         };
         Scenario {
             title: "a test".into(),
@@ -197,7 +198,6 @@ impl World {
             plan: self.plan,
             notes: Vec::new(),
             not_analysed: Vec::new(),
-            cannot_run: false,
         }
     }
 

@@ -3,12 +3,14 @@
 mod build;
 mod edges;
 mod nets;
+mod reference;
 mod sink;
 mod span;
 mod states;
 
 use edges::{MinPulse, Timing};
 use nets::{Count, NONE, Settle, Watch};
+use reference::AgainstReference;
 pub use sink::{Answers, Seen, Sink};
 use span::{Cone, NetWindow, Shut, reason_of};
 use states::{Expect, Never, NotAtRest};
@@ -47,7 +49,8 @@ pub struct Judge<S> {
     race_questions: Vec<u32>,
     oscillation_questions: Vec<u32>,
     before_rest_questions: Vec<u32>,
-    reference_questions: Vec<u32>,
+    /// Moment and number of the questions whether a pattern comes.
+    when_questions: Vec<(u32, u32)>,
     swallowed_questions: Vec<(Option<NetId>, u32)>,
     /// Questions of each moment that wait for it to be reached.
     by_moment: Vec<Vec<u32>>,
@@ -64,10 +67,13 @@ pub struct Judge<S> {
     nevers: Vec<Never>,
     timings: Vec<Timing>,
     min_pulses: Vec<MinPulse>,
+    against_reference: Option<AgainstReference>,
     never_dirty: bool,
     timing_dirty: bool,
 
     moment: Option<u32>,
+    /// When the present window began.
+    opened: Time,
     /// The moments that say what is asked of oscillation in this window: those of steps that say it themselves, else
     /// the one that names the window.
     oscillation_of: Vec<u32>,
@@ -237,6 +243,10 @@ impl<S: Sink> Judge<S> {
             }
         }
 
+        if let Some(reference) = &mut self.against_reference {
+            reference.close(closing, self.has_before.then_some(&self.before), sink);
+        }
+
         for gate in self.swallowing.drain(..) {
             let worst = std::mem::take(&mut self.swallowed[gate as usize]);
             let net = NetId(self.inputs + gate);
@@ -281,7 +291,7 @@ impl<S: Sink> Observer for Judge<S> {
     type Tag = ();
 
     fn start(&mut self, state: &State) {
-        self.moment = None;
+        (self.moment, self.opened) = (None, Time::ZERO);
         self.oscillation_of.clear();
         self.reached.fill(false);
         self.reached_count = 0;
@@ -349,7 +359,11 @@ impl<S: Sink> Observer for Judge<S> {
                 }
             }
         }
+        if let Some(reference) = &mut self.against_reference {
+            reference.open(opening.moments);
+        }
         self.moment = opening.moments.first().copied();
+        self.opened = opening.at;
         self.oscillation_of.clear();
         self.oscillation_of.extend(opening.moments.iter().filter(|moment| self.own_oscillation[**moment as usize]));
         if self.oscillation_of.is_empty() {
@@ -443,9 +457,10 @@ impl<S: Sink> Observer for Judge<S> {
     fn finish(&mut self, finish: &Finish<'_>) {
         self.shut = finish.end;
         self.close_nets(finish.state, |_| true);
-        let unseen = match (finish.end, finish.stopped_before) {
+        // what comes after a pattern that never came was not seen
+        let unseen = match (finish.end, finish.never_came) {
             (End::Unsettled(_), _) => Some(Reason::Unsettled),
-            (_, Some(_)) => Some(Reason::NotAnalysedYet),
+            (_, Some(_)) => Some(Reason::NotReached),
             _ => None,
         };
         let late = &mut self.late;
@@ -481,18 +496,25 @@ impl<S: Sink> Observer for Judge<S> {
                 }
             }
         }
-        for question in &self.reference_questions {
-            self.sink.not_judged(*question, Reason::NotAnalysedYet);
-        }
         if self.reached_count < self.reached.len() {
-            let reason = match unseen {
-                Some(Reason::NotAnalysedYet) => Reason::NotAnalysedYet,
-                _ => Reason::NotReached,
-            };
             for (moment, _) in self.reached.iter().enumerate().filter(|(_, reached)| !**reached) {
                 for question in &self.by_moment[moment] {
-                    self.sink.not_judged(*question, reason);
+                    self.sink.not_judged(*question, Reason::NotReached);
                 }
+            }
+        }
+        for (moment, question) in &self.when_questions {
+            let never_came = finish.never_came == Some(*moment);
+            if !never_came && !self.reached[*moment as usize] {
+                self.sink.not_judged(*question, Reason::NotReached);
+                continue;
+            }
+            self.sink.judged(*question, never_came, None);
+            if never_came {
+                let (kind, question, moment) = (Kind::NeverCame, Some(*question), Some(*moment));
+                let subject = Subject { kind, shape: None, question, net: None, moment };
+                let place = Some((self.opened, finish.at));
+                self.sink.fact(Fact { subject, breaks_rule: true, measure: None, place });
             }
         }
     }

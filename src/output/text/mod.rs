@@ -5,6 +5,7 @@
 
 mod check;
 mod findings;
+mod flow;
 mod notes;
 mod paper;
 mod review;

@@ -38,6 +38,8 @@ impl Tone {
 
 /// Widest and narrowest page, in columns.
 const WIDTHS: (usize, usize) = (60, 100);
+/// Before every line of a table.
+const INDENT: usize = 2;
 /// Between two columns of a table.
 const GAP: usize = 2;
 /// A column that may be cut is cut to this before others are dropped.
@@ -124,7 +126,7 @@ impl Paper {
 
     /// A table, indented by two.
     pub fn table(&mut self, table: &Table) {
-        let indent = 2;
+        let indent = INDENT;
         let (columns, widths) = table.fit(self.width - indent);
         let row = |cells: &dyn Fn(usize) -> String| {
             let mut line = " ".repeat(indent);
@@ -138,7 +140,7 @@ impl Paper {
             line.truncate(line.trim_end().len());
             line
         };
-        let head = row(&|column| table.columns[column].title.to_string());
+        let head = row(&|column| table.columns[column].title.clone());
         self.put(Tone::Quiet, &head);
         for (tone, cells) in &table.rows {
             let line = row(&|column| cells[column].clone());
@@ -193,7 +195,7 @@ fn cut(text: &str, width: usize) -> String {
 
 /// One column of a table.
 pub(super) struct Column {
-    title: &'static str,
+    title: String,
     right: bool,
     may_cut: bool,
     /// Columns with a greater number go first where there is no room; 0 stays.
@@ -212,20 +214,20 @@ impl Table {
     }
 
     /// A column of texts that may be cut.
-    pub fn text(mut self, title: &'static str) -> Table {
-        self.columns.push(Column { title, right: false, may_cut: true, drop: 0 });
+    pub fn text(mut self, title: impl Into<String>) -> Table {
+        self.columns.push(Column { title: title.into(), right: false, may_cut: true, drop: 0 });
         self
     }
 
     /// A column of numbers, aligned right; it is left out where there is no room if `drop` is above 0.
-    pub fn number(mut self, title: &'static str, drop: u8) -> Table {
-        self.columns.push(Column { title, right: true, may_cut: false, drop });
+    pub fn number(mut self, title: impl Into<String>, drop: u8) -> Table {
+        self.columns.push(Column { title: title.into(), right: true, may_cut: false, drop });
         self
     }
 
     /// A column of short words.
-    pub fn word(mut self, title: &'static str) -> Table {
-        self.columns.push(Column { title, right: false, may_cut: false, drop: 0 });
+    pub fn word(mut self, title: impl Into<String>) -> Table {
+        self.columns.push(Column { title: title.into(), right: false, may_cut: false, drop: 0 });
         self
     }
 
@@ -234,17 +236,25 @@ impl Table {
         self.rows.push((tone, cells));
     }
 
+    /// Does all of it fit a page, with nothing cut or left out?
+    pub fn fits(&self, paper: &Paper) -> bool {
+        let room = paper.width - INDENT;
+        let whole: usize = self.natural().iter().sum::<usize>() + GAP * self.columns.len().saturating_sub(1);
+        whole <= room
+    }
+
+    /// The widths that show every cell whole.
+    fn natural(&self) -> Vec<usize> {
+        let width = |(c, column): (usize, &Column)| {
+            let cells = self.rows.iter().map(|row| row.1[c].chars().count());
+            cells.chain([column.title.chars().count()]).max().unwrap_or(0)
+        };
+        self.columns.iter().enumerate().map(width).collect()
+    }
+
     /// Which columns are shown, and how wide.
     fn fit(&self, room: usize) -> (Vec<usize>, Vec<usize>) {
-        let natural: Vec<usize> = self
-            .columns
-            .iter()
-            .enumerate()
-            .map(|(c, column)| {
-                let cells = self.rows.iter().map(|row| row.1[c].chars().count());
-                cells.chain([column.title.chars().count()]).max().unwrap_or(0)
-            })
-            .collect();
+        let natural = self.natural();
         let mut shown: Vec<usize> = (0..self.columns.len()).collect();
         loop {
             let mut widths: Vec<usize> = shown.iter().map(|c| natural[*c]).collect();

@@ -1,7 +1,7 @@
 //! One run.
 
 use super::Page;
-use super::findings::{about, worst};
+use super::findings::{about, departure, worst};
 use super::paper::{Paper, Table, Tone};
 use super::{notes, rules, steps};
 use crate::engine::{End, Window};
@@ -40,13 +40,13 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
         table(&mut paper, scenario, windows);
         super::more(&mut paper, windows.len().saturating_sub(WINDOWS), "the JSON, with --json");
     }
-    if let Some(step) = words::step(scenario, report.trace.stopped_before) {
-        paper.say(2, Tone::Unsure, &format!("The run stops before step {step}, which is not analysed yet."));
+    if let Some(step) = words::step(scenario, report.trace.never_came) {
+        paper.say(2, Tone::Bad, &format!("The run ends before step {step}: what it waits for never came."));
     }
     if !report.facts.is_empty() {
         paper.heading("Found in this run, worst first");
         for fact in report.facts.iter().take(FACTS) {
-            let (tone, words) = told(scenario, asked, fact);
+            let (tone, words) = told(scenario, asked, report, fact);
             paper.item(tone, &words);
         }
         super::more(&mut paper, report.facts.len().saturating_sub(FACTS), "the JSON, with --json");
@@ -75,7 +75,7 @@ fn table(paper: &mut Paper, scenario: &Scenario, windows: &[Window]) {
             End::Settled => (Tone::Plain, steps::state(scenario, &scenario.outputs, &window.state)),
             End::Oscillating { period, .. } => (Tone::Unsure, format!("period {}", period.rounded())),
             End::Unsettled(hit) => (Tone::Unsure, format!("reached {}", hit.words())),
-            End::Cut => (Tone::Unsure, "cut by the next step".to_string()),
+            End::Cut => (Tone::Unsure, "cut before rest".to_string()),
         };
         let early = if window.began_at_rest { "" } else { " (applied before rest)" };
         table.row(
@@ -93,10 +93,13 @@ fn table(paper: &mut Paper, scenario: &Scenario, windows: &[Window]) {
 }
 
 /// One finding of the run.
-fn told(scenario: &Scenario, asked: &Asked, fact: &Fact) -> (Tone, String) {
+fn told(scenario: &Scenario, asked: &Asked, report: &RunReport, fact: &Fact) -> (Tone, String) {
     let mut text = about(scenario, asked, &fact.subject);
     if let Some(value) = words::worst_of(fact) {
         text += &format!(": {}", worst(fact.subject.kind, value));
+    }
+    if let Some(against) = report.against(fact) {
+        text += &format!(": {}", departure(scenario, against));
     }
     if let Some((from, to)) = fact.place {
         let unit = scenario.unit;

@@ -68,6 +68,7 @@ pub struct Builder {
     groups: Vec<NewGroup>,
     steps: Vec<Listed>,
     clocks: Vec<NewClock>,
+    every_change: Option<Mark>,
     rules: NewRules,
     reference: Option<NewReference>,
     limit_transitions: Said<u64>,
@@ -111,6 +112,7 @@ impl Builder {
             groups: Vec::new(),
             steps: Vec::new(),
             clocks: Vec::new(),
+            every_change: None,
             rules: NewRules::default(),
             reference: None,
             limit_transitions: Said::from(Limits::default().transitions),
@@ -235,12 +237,19 @@ impl Builder {
         self
     }
 
+    /// In place of steps: every single-input change from every reachable stable state, each at rest. The scenario that
+    /// [`Builder::finish`] gives has no steps yet; [`crate::flow::lay_out`] adds them.
+    pub fn every_single_change(&mut self, mark: Mark) -> &mut Builder {
+        self.every_change = Some(mark);
+        self
+    }
+
     /// The rules, to be added to.
     pub fn rules(&mut self) -> &mut NewRules {
         &mut self.rules
     }
 
-    /// The reference network, to be added to. Checked, not analysed yet.
+    /// The reference network, to be added to.
     pub fn reference(&mut self) -> &mut NewReference {
         self.reference.get_or_insert_default()
     }
@@ -347,7 +356,6 @@ impl Builder {
             plan,
             notes: in_order(context.notes),
             not_analysed: in_order(context.not_analysed),
-            cannot_run: context.cannot_run,
         })
     }
 

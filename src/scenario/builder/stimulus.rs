@@ -2,13 +2,15 @@
 
 use rustc_hash::{FxHashMap, FxHashSet};
 
-use super::context::{Context, Least, name_list};
+use super::context::{Context, Least};
 use super::delays::Checked;
 use super::said::{NewBounce, NewClock, NewPlace, NewState, NewStep, Said};
 use super::{BeginAt, Builder};
 use crate::circuit::NetId;
 use crate::delay::DelayRange;
-use crate::scenario::{Bounce, Clock, EdgeCount, Expectation, Fault, Mark, Moment, MomentKind, Place, Step, Stimulus};
+use crate::scenario::{
+    Bounce, Clock, EdgeCount, Expectation, Fault, Mark, Moment, MomentKind, Place, Step, Stimulus, Walk,
+};
 use crate::time::{Span, Time};
 
 /// Most moments of one scenario: power-up, steps with their loops unrolled, and clock edges.
@@ -45,12 +47,12 @@ pub(super) fn check(context: &mut Context<'_>, told: &Builder, delays: &Checked)
             templates.push(template(context, said, number, &clocked, delays.default_rest));
         }
     }
-    not_analysed(context, &templates);
     let mut stimulus = Stimulus {
         initial: told.inputs.iter().map(|(_, value)| *value).collect(),
         steps: Vec::new(),
         clocks,
         moments: Vec::new(),
+        walk: walk(context, told, delays.default_rest),
     };
     let power_up = told.begin.what != BeginAt::Rest;
     if !room(context, told, power_up) {
@@ -60,6 +62,32 @@ pub(super) fn check(context: &mut Context<'_>, told: &Builder, delays: &Checked)
     check_order(context, &templates, &order);
     label(context, &templates, &order, power_up, &mut stimulus);
     stimulus
+}
+
+/// Where the steps come from. A walk over every change moves the inputs alone, and has to know where it begins.
+fn walk(context: &mut Context<'_>, told: &Builder, rest: Span) -> Walk {
+    let Some(mark) = told.every_change else { return Walk::Written };
+    if let Some(listed) = told.steps.first() {
+        let other =
+            listed.times.map_or_else(|| listed.steps.first().map_or(listed.mark, |step| step.mark), |it| it.mark);
+        let message = "the walk over every single change takes the place of steps";
+        let fault = Fault::new(mark, message, "remove `stimulus`, or the steps");
+        context.faults.push(fault.related(other, "a step"));
+    }
+    if let Some(clock) = told.clocks.first() {
+        let message = "the walk over every single change moves all inputs itself, those of clocks too";
+        let fault = Fault::new(mark, message, "remove `stimulus`, or the clocks");
+        context.faults.push(fault.related(clock.net.mark, "a clock"));
+    }
+    if told.begin.what != BeginAt::Rest {
+        let message = "the walk over every single change has to know where it begins";
+        let fault = Fault::new(mark, message, "begin at rest: remove `begin`, or write steps");
+        context.faults.push(fault.related(told.begin.mark, "it begins elsewhere"));
+    }
+    if told.inputs.is_empty() {
+        context.faults.add(mark, "there is no input to change", "list inputs under `[inputs]`, or remove `stimulus`");
+    }
+    Walk::ToLayOut { rest, mark }
 }
 
 /// Is there room for all moments? The first thing that is too much is reported.
@@ -235,26 +263,6 @@ fn mark_of(place: &NewPlace, step: Mark) -> Mark {
         NewPlace::Rest(amount) => amount.mark,
         NewPlace::When { pattern, .. } => pattern.mark,
         NewPlace::Unreadable => step,
-    }
-}
-
-/// Says which steps hold what is not analysed yet.
-fn not_analysed(context: &mut Context<'_>, templates: &[Template]) {
-    let which = |wanted: fn(&Step) -> bool| -> Vec<&Step> {
-        templates.iter().map(|template| &template.step).filter(|step| wanted(step)).collect()
-    };
-    let labels = |steps: &[&Step]| name_list(steps.iter().map(|step| step.label.as_str()));
-    let waits = which(|step| matches!(step.place, Place::When { .. }));
-    if let Some(first) = waits.first() {
-        context.not_analysed(
-            first.mark,
-            format!("`when` of {}: not analysed yet; every run stops before it", labels(&waits)),
-        );
-    }
-    let bounces = which(|step| step.bounce.is_some());
-    if let Some(first) = bounces.first() {
-        let labels = labels(&bounces);
-        context.not_analysed(first.mark, format!("`bounce` of {labels}: not analysed yet; every run stops before it"));
     }
 }
 

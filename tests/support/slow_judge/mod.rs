@@ -1,6 +1,7 @@
 //! A slow judge without tricks, for comparison: it keeps the whole run as plain lists and answers every question by
 //! looking through them, in the words of the semantics.
 
+mod reference;
 mod runs;
 mod windows;
 
@@ -40,7 +41,7 @@ impl Log {
     /// A line for each window and each batch.
     pub fn in_words(&self) -> String {
         let record = &self.recorder.record;
-        let mut text = format!("start {:?}\nend {} {:?}", record.start, record.end, record.stopped_before);
+        let mut text = format!("start {:?}\nend {} {:?}", record.start, record.end, record.never_came);
         for (number, window) in record.windows.iter().enumerate() {
             text += &format!("\nwindow {number}: {window:?}");
             for batch in self.batches.iter().filter(|batch| batch.window == number) {
@@ -153,7 +154,8 @@ pub fn judge(scenario: &Scenario, asked: &Asked, log: &Log) -> Said {
             RuleKey::Never => slow.never(number, question),
             RuleKey::Expect => slow.expect(number, question),
             RuleKey::Edges => slow.edges(number, question),
-            RuleKey::NeverAtRest | RuleKey::GlitchFree | RuleKey::SettleWithin | RuleKey::Reference => {}
+            RuleKey::NeverAtRest | RuleKey::GlitchFree | RuleKey::SettleWithin => {}
+            RuleKey::Reference => slow.reference(number, question),
             RuleKey::CriticalRace => slow.critical_race(number, question),
             RuleKey::Oscillation if question.moment.is_none() => slow.oscillation_somewhere(number),
             RuleKey::Oscillation => slow.oscillation(number, question),
@@ -161,6 +163,7 @@ pub fn judge(scenario: &Scenario, asked: &Asked, log: &Log) -> Said {
             RuleKey::MinPulse => slow.min_pulse(number, question),
             RuleKey::Swallowed => slow.swallowed_rule(number, question),
             RuleKey::BeforeRest => slow.before_rest(number, question),
+            RuleKey::When => slow.when(number, question),
         }
     }
     slow.never_at_rest();
@@ -219,7 +222,7 @@ impl<'a> Slow<'a> {
     }
 
     fn stopped(&self) -> bool {
-        self.log.recorder.record.stopped_before.is_some()
+        self.log.recorder.record.never_came.is_some()
     }
 
     fn step_of(&self, moment: u32) -> Option<&'a Step> {
