@@ -108,12 +108,12 @@ fn read(table: &Path) -> Result<Vec<Row>, Box<dyn Error>> {
     Ok(rows)
 }
 
-/// The families with their ink, and whether their line is dashed.
-const FAMILIES: [(&str, RGBColor, bool); 4] = [
-    ("dividers", INK, false),
-    ("array of latches", RGBColor(0x0b, 0x6b, 0x7d), false),
-    ("random, near", RGBColor(0x7a, 0x3f, 0xa0), true),
-    ("random, scattered", RGBColor(0xb3, 0x42, 0x0f), true),
+/// The families with their ink, whether their line is dashed and their points open, and where their name stands.
+const FAMILIES: [(&str, RGBColor, bool, bool, (HPos, VPos)); 4] = [
+    ("dividers", INK, false, false, (HPos::Left, VPos::Bottom)),
+    ("array of latches", RGBColor(0x0b, 0x6b, 0x7d), false, true, (HPos::Left, VPos::Top)),
+    ("random, near", RGBColor(0x7a, 0x3f, 0xa0), true, false, (HPos::Left, VPos::Center)),
+    ("random, scattered", RGBColor(0xb3, 0x42, 0x0f), true, true, (HPos::Left, VPos::Center)),
 ];
 const INK: RGBColor = RGBColor(0x1d, 0x24, 0x30);
 const QUIET: RGBColor = RGBColor(0x8a, 0x93, 0xa0);
@@ -144,7 +144,7 @@ fn draw(rows: &[Row], file: &Path) -> Result<(), Box<dyn Error>> {
         let (_, below) = root.split_vertically(HEAD);
         let (left, right) = below.split_horizontally(SIZE.0 / 2);
         panel(&left, rows, "processor time [s]", (1e-5, 100.0), (TARGET, "target: 1 s"), |row| row.seconds)?;
-        let budget = (BUDGET, "budget: 2^24 nodes");
+        let budget = (BUDGET, "budget: 2²⁴ nodes");
         panel(&right, rows, "nodes of the diagram", (10.0, 1e8), budget, |row| row.nodes.unwrap_or(BUDGET))?;
         root.present()?;
     }
@@ -168,11 +168,7 @@ fn panel(
         .margin_right(20)
         .x_label_area_size(40)
         .y_label_area_size(64)
-        .build_cartesian_2d((5.0..5000.0).log_scale(), (range.0..range.1).log_scale())?;
-    let power = |value: &f64| match *value {
-        value if (0.01..10_000.0).contains(&value) => format!("{value}"),
-        value => format!("10^{:.0}", value.log10()),
-    };
+        .build_cartesian_2d((5.0..10_000.0).log_scale(), (range.0..range.1).log_scale())?;
     chart
         .configure_mesh()
         .light_line_style(TRANSPARENT)
@@ -183,22 +179,31 @@ fn panel(
         .label_style(text(11.0, INK))
         .axis_desc_style(text(12.0, INK))
         .x_label_formatter(&|value| format!("{value}"))
-        .y_label_formatter(&power)
+        .y_label_formatter(&|value| power(*value))
         .draw()?;
-    chart.draw_series(DashedLineSeries::new([(5.0, limit), (5000.0, limit)], 6, 4, INK.into()))?;
+    chart.draw_series(DashedLineSeries::new([(5.0, limit), (10_000.0, limit)], 6, 4, INK.into()))?;
     let above = Pos::new(HPos::Left, VPos::Bottom);
     chart.draw_series([Text::new(limit_name, (6.0, limit * 1.15), text(11.0, INK).pos(above))])?;
-    for (family, ink, dashed) in FAMILIES {
+    for (family, ink, dashed, open, side) in FAMILIES {
         let members: Vec<&Row> = rows.iter().filter(|row| row.network == family).collect();
-        let points = members.iter().map(|row| ((row.gates, value(row)), row.nodes.is_some()));
-        for (point, done) in points {
-            if done {
-                chart.draw_series([Circle::new(point, 2, ink.filled())])?;
-            } else {
-                chart.draw_series([Cross::new(point, 4, ink.stroke_width(1))])?;
-            }
+        for row in &members {
+            let point = (row.gates, value(row));
+            let style = if open { ink.stroke_width(1) } else { ink.filled() };
+            match row.nodes {
+                Some(_) => chart.draw_series([Circle::new(point, 2, style)])?,
+                None => chart.draw_series([Cross::new(point, 4, ink.stroke_width(1))])?,
+            };
         }
-        line(&mut chart, &medians(&members, &value), family, ink, dashed)?;
+        let middle = medians(&members, &value);
+        line(&mut chart, &middle, ink, dashed)?;
+        // solid lines are named where they begin, the others where they end: there they are apart
+        let place = match (middle.first(), middle.last(), side.1) {
+            (Some(&(gates, value)), _, VPos::Bottom) => (gates, value * 5.0),
+            (Some(&(gates, value)), _, VPos::Top) => (gates * 1.7, value),
+            (_, Some(&(gates, value)), _) => (gates * 1.12, value),
+            _ => continue,
+        };
+        chart.draw_series([Text::new(family, place, text(11.0, ink).pos(Pos::new(side.0, side.1)))])?;
     }
     Ok(())
 }
@@ -210,23 +215,25 @@ fn medians(members: &[&Row], value: &impl Fn(&Row) -> f64) -> Vec<(f64, f64)> {
     points.chunk_by(|a, b| a.0 == b.0).map(|same| same[same.len() / 2]).collect()
 }
 
-fn line(
-    chart: &mut Axes<'_, '_>,
-    points: &[(f64, f64)],
-    name: &'static str,
-    ink: RGBColor,
-    dashed: bool,
-) -> Result<(), Box<dyn Error>> {
+/// A power of ten.
+fn power(value: f64) -> String {
+    let digits = ['⁰', '¹', '²', '³', '⁴', '⁵', '⁶', '⁷', '⁸', '⁹'];
+    match value.log10().round() as i32 {
+        0 => "1".to_string(),
+        1 => "10".to_string(),
+        power => {
+            let sign = if power < 0 { "⁻" } else { "" };
+            format!("10{sign}{}", digits[power.unsigned_abs() as usize % 10])
+        }
+    }
+}
+
+fn line(chart: &mut Axes<'_, '_>, points: &[(f64, f64)], ink: RGBColor, dashed: bool) -> Result<(), Box<dyn Error>> {
     let style = ink.stroke_width(2);
     if dashed {
         chart.draw_series(DashedLineSeries::new(points.iter().copied(), 7, 4, style))?;
     } else {
         chart.draw_series(LineSeries::new(points.iter().copied(), style))?;
-    }
-    if let Some(&(gates, value)) = points.last() {
-        // beside the end of the line; the random ones end close together, above the others
-        let right = Pos::new(HPos::Left, VPos::Center);
-        chart.draw_series([Text::new(name, (gates * 1.12, value), text(11.0, ink).pos(right))])?;
     }
     Ok(())
 }

@@ -36,7 +36,9 @@ pub fn states(scenario: &Scenario, report: &StatesReport, page: &Page<'_>) -> St
     }
     paper.say(2, Tone::Plain, &format!("Feedback nets (cut every loop): {}.", list(&report.feedback)));
     let fewest = if report.state_variables_exact { "surely the fewest" } else { "perhaps not the fewest" };
-    let variables = list(&report.state_variables);
+    // none is an answer only where it is sure
+    let known = report.state_variables_exact || !report.state_variables.is_empty();
+    let variables = if known { list(&report.state_variables) } else { "not known, the budget ran out".to_string() };
     let fewest = if report.state_variables.is_empty() { String::new() } else { format!(" ({fewest})") };
     paper.say(2, Tone::Plain, &format!("State variables: {variables}{fewest}."));
     if !flow::table(&mut paper, scenario, report) {
