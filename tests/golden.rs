@@ -287,7 +287,7 @@ fn lists() {
 fn texts() {
     let scenario = lock();
     let mut review = results::review(&scenario);
-    let page = Page { style: Style::Plain, width: 100, scenario: Some("locks/interlock.toml") };
+    let page = Page { scenario: Some("locks/interlock.toml"), ..Page::default() };
     let narrow = Page { width: 60, ..page };
     let colour = Page { style: Style::Ansi, ..page };
     golden("check.txt", &text::check(&scenario, &page));

@@ -2,13 +2,17 @@
 
 #![allow(clippy::unwrap_used)] // a helper that fails is a test that fails
 
+mod boards;
 mod commands;
+mod conditions;
 mod coverage;
 mod demonstrations;
 mod draws;
 mod engine_agrees;
 mod engine_properties;
 mod golden;
+mod groups;
+mod hypercube;
 mod judges_agree;
 mod malformed;
 mod outside;

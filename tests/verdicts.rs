@@ -284,9 +284,8 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
         file("", "after = 50\nbounce = { lasting = [1, 5], pulses = [0, 6] }", ""),
         file(", filter = { reject = 2 }", "after = 50", ""),
         file(", filter = { involution = { tau = 1 } }", "after = 50", ""),
-        file("", "after = 50", "[[groups]]\ngates = [\"out\"]\ntracking = 0.9"),
         file("", "after = 50", "[reference]\ncompare = [\"out\"]\n[reference.gates]\nout = { buf = [\"a\"] }"),
-        file("", "after = 50", "[sweep]\nvary = \"cycle\""),
+        file("", "after = 50", "[sweep]\nvary = \"per-event\""),
     ];
     for case in &cases {
         case.is(Call::Undecided, &["not analysed yet"]);
@@ -300,7 +299,7 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
         assert!(text.contains("not analysed yet"), "{text}");
     }
     // but what is broken without it is broken
-    let broken = "[[rules.never]]\nstate = { a = 0 }\n[[groups]]\ngates = [\"out\"]\ntracking = 0.9";
+    let broken = "[[rules.never]]\nstate = { a = 0 }\n[parts]\nx = 1";
     file("", "after = 50", broken).is(Call::Broken, &["never"]);
 }
 

@@ -22,7 +22,7 @@ pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
     if input.json {
         say(&document)?;
     } else if !input.quiet {
-        say(&text::states(&scenario, &report, &page(called(input).as_deref())))?;
+        say(&text::states(&scenario, &report, &page(called(input).as_deref(), "")))?;
     }
     let mut bundle = Bundle::default();
     bundle.add("states.csv", tables::states(&scenario, &report));

@@ -3,7 +3,9 @@
 //! A case is typical, least, greatest, drawn by number, or given (by a file, a search, a proof): all of them are an
 //! [`Instance`], so all of them can be run, drawn as a picture, and replayed.
 
+mod groups;
 mod sampler;
+mod strata;
 
 pub use sampler::{LAYOUT, Sampler};
 

@@ -9,4 +9,5 @@ pub mod slow_engine;
 pub mod slow_judge;
 pub mod slow_recurrence;
 pub mod slow_sweep;
+pub mod spread;
 pub mod world;

@@ -193,7 +193,7 @@ fn cut(text: &str, width: usize) -> String {
 
 /// One column of a table.
 pub(super) struct Column {
-    title: &'static str,
+    title: String,
     right: bool,
     may_cut: bool,
     /// Columns with a greater number go first where there is no room; 0 stays.
@@ -212,20 +212,20 @@ impl Table {
     }
 
     /// A column of texts that may be cut.
-    pub fn text(mut self, title: &'static str) -> Table {
-        self.columns.push(Column { title, right: false, may_cut: true, drop: 0 });
+    pub fn text(mut self, title: impl Into<String>) -> Table {
+        self.columns.push(Column { title: title.into(), right: false, may_cut: true, drop: 0 });
         self
     }
 
     /// A column of numbers, aligned right; it is left out where there is no room if `drop` is above 0.
-    pub fn number(mut self, title: &'static str, drop: u8) -> Table {
-        self.columns.push(Column { title, right: true, may_cut: false, drop });
+    pub fn number(mut self, title: impl Into<String>, drop: u8) -> Table {
+        self.columns.push(Column { title: title.into(), right: true, may_cut: false, drop });
         self
     }
 
     /// A column of short words.
-    pub fn word(mut self, title: &'static str) -> Table {
-        self.columns.push(Column { title, right: false, may_cut: false, drop: 0 });
+    pub fn word(mut self, title: impl Into<String>) -> Table {
+        self.columns.push(Column { title: title.into(), right: false, may_cut: false, drop: 0 });
         self
     }
 

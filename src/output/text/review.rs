@@ -2,7 +2,7 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use super::{findings, notes, rules, steps};
+use super::{conditions, findings, notes, rules, steps, sure};
 use crate::output::words;
 use crate::review::{Call, Review, Verdict};
 use crate::scenario::Scenario;
@@ -62,9 +62,11 @@ pub(super) fn body(
         steps::steps(paper, scenario, report);
     }
     findings::findings(paper, page, scenario, asked, report);
+    conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
     rules::not_judged(paper, scenario, report);
     rules::margins(paper, scenario, report);
+    sure::sure(paper, scenario, report);
     notes::notes(paper, scenario);
 }
 
