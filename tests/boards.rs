@@ -52,7 +52,7 @@ min = {min}
 /// Dead time = fall of the auxiliary contact + coil + rise − fall of the main contacts: of the board alone.
 #[test]
 fn a_dead_time_that_few_boards_break_always() {
-    let (boards, count, of, said) = turned_round(&[], "1", "12", "samples = 4000\ntries = 10");
+    let (boards, count, of, said) = turned_round(&[], "20", "22", "samples = 4000\ntries = 10");
     assert_eq!((boards.of, of), (400, 4000));
     assert_eq!(count, 10 * boards.failing, "a board that fails, fails in every try");
     assert!((1..120).contains(&boards.failing), "{boards:?}");
@@ -79,6 +79,6 @@ fn a_dead_time_that_all_boards_break_rarely() {
 #[test]
 fn a_hypercube_has_boards_but_no_interval() {
     let sweep = "samples = 4000\ntries = 10\ndraw = \"hypercube\"";
-    let (boards, ..) = turned_round(&[], "1", "12", sweep);
+    let (boards, ..) = turned_round(&[], "20", "22", sweep);
     assert_eq!((boards.of, boards.interval, boards.cause()), (400, None, Cause::Parts));
 }

@@ -77,12 +77,12 @@ fn figures(finding: &Finding) -> String {
         if let Some((low, high)) = boards.interval {
             text += &format!(" (95 %: {} to {})", words::percent(low), words::percent(high));
         }
-        text += &match boards.cause() {
-            Cause::Parts => format!(", on them in {mean} of tries: it lies in their parts"),
-            Cause::Moment => format!(", on them in {mean} of tries: it lies in the moment of the step"),
-            Cause::Mixed => format!(", on them in {mean} of tries"),
+        text += &format!(", in {mean} of their tries, the worst in {worst}");
+        text += match boards.cause() {
+            Cause::Parts => ": it lies in their parts",
+            Cause::Moment => ": it lies in the moment of the step",
+            Cause::Mixed => "",
         };
-        text += &format!("; the worst in {worst} of its tries");
     }
     if let Some(value) = finding.worst {
         text += &format!("; {}", worst(finding.subject.kind, value));

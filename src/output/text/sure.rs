@@ -5,46 +5,36 @@ use crate::output::words;
 use crate::scenario::Scenario;
 use crate::sweep::{AtMost, SweepReport, UnseenMass};
 
-/// What was never seen, and what has not been seen yet.
+/// What was never seen, and what has not been seen yet: a few lines below the count of questions.
 pub(super) fn sure(paper: &mut Paper, scenario: &Scenario, report: &SweepReport) {
     if report.samples == 0 {
         return;
     }
-    let mut lines: Vec<(Tone, String)> = Vec::new();
     if !report.plan.draw.allows_intervals() {
         let draw = report.plan.draw.name();
-        lines.push((
-            Tone::Plain,
-            format!("Draws of {draw} are not independent draws of parts: no interval and no upper bound is given."),
-        ));
+        let text = format!("Draws of {draw} are not independent draws of parts: no interval, no upper bound is given.");
+        paper.say(0, Tone::Plain, &text);
     } else if let Some(at_most) = report.at_most {
-        lines.push((Tone::Plain, format!("None of {} broke a rule. {}.", of(&at_most), bound(&at_most))));
-    } else {
-        // of the rules that no draw broke, the one that was judged least
-        let kept = report.rules.iter().filter_map(|rule| rule.at_most);
-        if let Some(weakest) = kept.max_by(|a, b| a.share.total_cmp(&b.share)) {
-            let text =
-                format!("A rule that none of {} broke: {}.", of(&weakest), bound(&weakest).replacen('A', "a", 1));
-            lines.push((Tone::Plain, text));
-        }
+        let text = format!("No rule broken in {}: it happens in at most {}.", of(&at_most), bound(&at_most));
+        paper.say(0, Tone::Plain, &text);
+    } else if let Some(weakest) = least_judged(report) {
+        let text = format!("A rule not broken in {}: it is in at most {}.", of(&weakest), bound(&weakest));
+        paper.say(0, Tone::Plain, &text);
     }
     if let Some(mass) = &report.unseen {
-        lines.push(unseen(scenario, mass));
+        unseen(paper, scenario, mass);
     }
-    match report.unseen_untold {
-        0 => {}
-        n => lines.push((
-            Tone::Unsure,
-            format!(
-                "In {} there were too many different orders of loop nets to tell what was not seen yet.",
-                words::many(n, "step")
-            ),
-        )),
+    if report.unseen_untold > 0 {
+        let steps = words::many(report.unseen_untold, "step");
+        let text = format!("In {steps} loop nets changed in too many orders to tell what was not seen yet.");
+        paper.say(0, Tone::Unsure, &text);
     }
-    if !lines.is_empty() {
-        paper.heading("How sure");
-        lines.into_iter().for_each(|(tone, text)| paper.item(tone, &text));
-    }
+}
+
+/// Of the rules that no draw broke, the one that was judged least.
+fn least_judged(report: &SweepReport) -> Option<AtMost> {
+    let kept = report.rules.iter().filter_map(|rule| rule.at_most);
+    kept.max_by(|a, b| a.share.total_cmp(&b.share))
 }
 
 fn of(at_most: &AtMost) -> String {
@@ -53,22 +43,21 @@ fn of(at_most: &AtMost) -> String {
 
 fn bound(at_most: &AtMost) -> String {
     let what = if at_most.boards { "boards" } else { "draws" };
-    format!("At most {} of such {what} break it (upper bound, one-sided 95 %)", words::percent(at_most.share))
+    format!("{} of such {what} (upper bound, one-sided 95 %)", words::percent(at_most.share))
 }
 
-fn unseen(scenario: &Scenario, mass: &UnseenMass) -> (Tone, String) {
+fn unseen(paper: &mut Paper, scenario: &Scenario, mass: &UnseenMass) {
     let step = words::step(scenario, Some(mass.moment)).unwrap_or_default();
-    let figures = format!(
-        "step {step}: {} (estimate by Good and Turing; at most {}, one-sided 95 %)",
-        words::percent(mass.estimate),
-        words::percent(mass.upper)
-    );
+    let (estimate, upper) = (words::percent(mass.estimate), words::percent(mass.upper));
+    let figures = format!("in {estimate} of further draws (Good-Turing; at most {upper}, one-sided 95 %)");
     if mass.is_high() {
-        let text = format!(
-            "Much has not been seen yet. Chance that the next draw changes loop nets in a new order, {figures}. Draw more samples."
-        );
-        (Tone::Unsure, text)
+        let text = format!("Draw more: loop nets would change in an order not seen yet, at step {step}, {figures}.");
+        paper.say(0, Tone::Unsure, &text);
+    } else if mass.once > 0 {
+        let text = format!("Loop nets would change in an order not seen yet, at step {step}, {figures}.");
+        paper.say(0, Tone::Plain, &text);
     } else {
-        (Tone::Plain, format!("Chance that the next draw changes loop nets in a new order, {figures}."))
+        let text = format!("No order of loop nets was seen only once: a new one comes {figures}.");
+        paper.say(0, Tone::Plain, &text);
     }
 }
