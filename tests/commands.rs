@@ -52,7 +52,9 @@ fn the_main_job_on_the_demonstration_leaves_its_files() {
         "outcomes.csv",
         "findings.csv",
         "rules.csv",
+        "states.svg",
         "states.csv",
+        "transitions.csv",
     ] {
         assert!(files.get(name).is_some_and(|bytes| !bytes.is_empty()), "{name} in {:?}", files.keys());
     }

@@ -5,19 +5,25 @@
 #![allow(clippy::unwrap_used)]
 
 mod cases;
+mod flows;
 mod results;
 
 use std::path::PathBuf;
+use std::sync::Arc;
 
 use cases::*;
-use stillgate::circuit::Function;
+use stillgate::circuit::{Function, NetId};
 use stillgate::findings::{Asked, Shape};
+use stillgate::flow::{Flow, FlowState, FlowTable, Reached, Transition};
 use stillgate::instance::Which;
+use stillgate::logic::Bits;
+use stillgate::output::flow_map::{self, Map};
 use stillgate::output::text::{self, Page, Style};
 use stillgate::output::waves::{self, Picture};
-use stillgate::output::{bundle, charts, json, tables};
-use stillgate::review::RunReport;
-use stillgate::scenario::Scenario;
+use stillgate::output::{bundle, charts, flow_tables, json, tables};
+use stillgate::review::{RunReport, StatesReport};
+use stillgate::scenario::{RefNet, Reference, Scenario};
+use stillgate::statics::{Change, Race};
 
 /// Compares a text with its golden file, or writes the file.
 fn golden(name: &str, text: &str) {
@@ -234,11 +240,88 @@ fn the_files_of_a_review() {
         "outcomes.csv",
         "findings.csv",
         "rules.csv",
+        "states.svg",
         "states.csv",
+        "transitions.csv",
     ];
     assert_eq!(names, wanted);
     assert!(bundle.notes[0].starts_with("3 of 6 findings have a picture"), "{:?}", bundle.notes);
     assert_eq!(bundle, bundle::of_review(&scenario, &review), "the same bytes again");
+}
+
+/// The map of a table with one state variable.
+fn map(scenario: &Scenario, flow: &Flow, variable: &[&str]) -> String {
+    let state_variables: Vec<_> = variable.iter().map(|name| net(scenario, name)).collect();
+    flow_map::svg(&Map { scenario, flow, state_variables: &state_variables, id: "states" })
+}
+
+#[test]
+fn the_map_of_a_lock_has_a_race_and_gaps() {
+    let scenario = lock();
+    let svg = map(&scenario, &flows::lock(&scenario), &["hold_upper"]);
+    well_formed(&svg);
+    golden("map-lock.svg", &svg);
+}
+
+#[test]
+fn the_map_of_a_ring_ends_in_a_loop() {
+    let scenario = ring(100);
+    let svg = map(&scenario, &flows::ring(&scenario), &[]);
+    well_formed(&svg);
+    golden("map-ring.svg", &svg);
+}
+
+#[test]
+fn the_map_of_a_latch_after_power_up_has_two_starts_and_an_open_end() {
+    let scenario = unknown();
+    let flow = flows::unknown(&scenario);
+    let svg = map(&scenario, &flow, &["q"]);
+    well_formed(&svg);
+    golden("map-latch.svg", &svg);
+    let report = StatesReport { flow, ..results::states(&lock()) };
+    golden("map-latch.csv", &flow_tables::states(&scenario, &report));
+}
+
+/// What a user wrote is escaped in a map, and long names stay on the sheet.
+#[test]
+fn a_map_of_very_long_names() {
+    let scenario = long_names();
+    let mut values = rest(&scenario);
+    let state = |values: &Bits| FlowState { values: values.clone(), reachable: true, explored: true };
+    let first = state(&values);
+    values.flip(0);
+    values.flip(2);
+    values.flip(3);
+    let change = Change::of_one(&first.values, NetId(0));
+    let to = Reached::Exact { states: vec![1], cycles: 0, race: Race::None };
+    let step = Transition { moment: Some(0), from: 0, change, to, essential: None, sure: true };
+    let table =
+        FlowTable { states: vec![first, state(&values)], start: vec![0], steps: vec![step], ..Default::default() };
+    let svg = map(&scenario, &Flow { table, ..Flow::default() }, &[]);
+    well_formed(&svg);
+    golden("map-long-names.svg", &svg);
+}
+
+/// A comparison with a reference is told in the text and in the JSON of `states`, and in the review.
+#[test]
+fn a_reference_in_every_output() {
+    let mut scenario = lock();
+    let open = ["open_upper", "open_lower"].map(|name| net(&scenario, name));
+    scenario.reference = Some(Arc::new(Reference {
+        circuit: (*scenario.circuit).clone(),
+        compare: open.iter().map(|net| (*net, RefNet(*net))).collect(),
+    }));
+    let mut review = results::review(&scenario);
+    review.states.flow.compared = Some(flows::compared(&scenario));
+    golden("states-reference.txt", &text::states(&scenario, &review.states, &Page::default()));
+    let said = text::review(&scenario, &review, &Page::default());
+    assert!(said.contains("There are stable states that the reference does not have"), "{said}");
+    let document: serde_json::Value = serde_json::from_str(&json::states(&scenario, &review.states)).unwrap();
+    let reference = &document["reference"];
+    assert_eq!(reference["states"], "not");
+    assert_eq!(reference["beyond"][0]["allowed"][0], serde_json::json!({"open_upper": 1, "open_lower": 0}));
+    assert_eq!(reference["choices"][0]["step"], "together");
+    assert_eq!(reference["choices"][0]["outcomes"].as_array().unwrap().len(), 2);
 }
 
 /// Every sheet is XML: tags match, and what a user wrote is escaped.
@@ -280,7 +363,8 @@ fn lists() {
     golden("outcomes.csv", &tables::outcomes(&scenario, &review.sweep));
     golden("findings.csv", &tables::findings(&scenario, &review.asked, &review.sweep));
     golden("rules.csv", &tables::rules(&scenario, &review.sweep));
-    golden("states.csv", &tables::states(&scenario, &review.states));
+    golden("states.csv", &flow_tables::states(&scenario, &review.states));
+    golden("transitions.csv", &flow_tables::transitions(&scenario, &review.states));
 }
 
 #[test]
@@ -319,7 +403,7 @@ fn texts_keep_to_the_page() {
             assert!(line.chars().count() <= width.min(100), "{width} columns: {line}");
         }
         if width >= 100 {
-            assert!(texts[0].lines().count() <= 56, "{}", texts[0]);
+            assert!(texts[0].lines().count() <= 60, "{}", texts[0]);
         }
     }
 }

@@ -20,10 +20,11 @@ use crate::support::random_worlds::{Case, Filters, Kind as Worlds, Lengths, PLAI
 use crate::support::slow_judge::{self, Answer, Found, Log, Said};
 
 /// The rules that one run alone can break.
-const RULES: [&str; 11] = [
+const RULES: [&str; 12] = [
     "never",
     "never_at_rest",
     "expect",
+    "reference",
     "oscillation",
     "glitch_free",
     "edges",

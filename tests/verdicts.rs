@@ -4,6 +4,7 @@ use stillgate::circuit::NetId;
 use stillgate::control::Control;
 use stillgate::engine::Program;
 use stillgate::findings::{Kind, Reason, RuleKey};
+use stillgate::logic::Value;
 use stillgate::output::text;
 use stillgate::reader;
 use stillgate::review::{Call, Review, review};
@@ -284,7 +285,6 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
         file("", "after = 50\nbounce = { lasting = [1, 5], pulses = [0, 6] }", ""),
         file(", filter = { reject = 2 }", "after = 50", ""),
         file(", filter = { involution = { tau = 1 } }", "after = 50", ""),
-        file("", "after = 50", "[reference]\ncompare = [\"out\"]\n[reference.gates]\nout = { buf = [\"a\"] }"),
         file("", "after = 50", "[sweep]\nvary = \"per-event\""),
     ];
     for case in &cases {
@@ -301,6 +301,161 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
     // but what is broken without it is broken
     let broken = "[[rules.never]]\nstate = { a = 0 }\n[parts]\nx = 1";
     file("", "after = 50", broken).is(Call::Broken, &["never"]);
+}
+
+#[test]
+fn a_state_that_the_reference_does_not_allow_breaks_it() {
+    let file = |wanted: &str, rules: &str| {
+        Reviewed::of(&format!(
+            r#"
+            [inputs]
+            a = 0
+            [gates]
+            out = {{ buf = ["a"], delay = [5, 15] }}
+            [[steps]]
+            label = "first"
+            at = 100
+            set = {{ a = 1 }}
+            [[steps]]
+            label = "second"
+            {rules}
+            set = {{ a = 0 }}
+            [sweep]
+            samples = 200
+            [reference]
+            [reference.gates]
+            out = {{ {wanted} }}
+            "#
+        ))
+    };
+    file("buf = [\"a\"]", "").is(Call::NoFailureFound, &["in 200 draws"]);
+    // it should hold what it was given
+    let held = file("expr = \"a | out\"", "");
+    held.is(
+        Call::Broken,
+        &["not-in-reference", "\"second\"", "rests at out=0, the reference allows out=1", "in 200 of 200"],
+    );
+    let [first, second] = &held.review.sweep.windows[..] else { panic!("two steps") };
+    assert!(!first.outcomes[0].breaks_rule && second.outcomes[0].breaks_rule);
+    // a step that comes too early leaves a window that is not judged, and one whose state before is not known:
+    // out = 0 is a stable state of the reference, and that is all that can be asked
+    let early = file("expr = \"a | out\"", "after = 5");
+    early.is(Call::Undecided, &["reference", "cut"]);
+    let rule = |case: &Reviewed, moment: u32| {
+        let mut rules = case.review.sweep.rules.iter();
+        let found = rules.find(|it| it.question.rule == RuleKey::Reference && it.question.moment == Some(moment));
+        let found = found.expect("a question for each step");
+        (found.judged, found.broken, found.not_judged.clone())
+    };
+    let (judged, broken, not_judged) = rule(&early, 0);
+    assert_eq!((broken, not_judged), (0, vec![(Reason::Cut, 200 - judged)]));
+    assert_eq!(rule(&early, 1), (200, 0, vec![]));
+    // an impossible state before: nothing may follow
+    let never = file("expr = \"!a\"", "");
+    never.is(Call::Broken, &["\"first\" (rests at out=1, the reference allows nothing from there)"]);
+}
+
+#[test]
+fn a_race_of_which_the_reference_allows_one_end() {
+    let latch = |wanted: &str| {
+        Reviewed::of(&format!(
+            r#"
+            outputs = ["q"]
+            [inputs]
+            r = 1
+            s = 1
+            [gates]
+            q = {{ nor = ["r", "qn"], delay = [5, 9] }}
+            qn = {{ nor = ["s", "q"], delay = [4, 7] }}
+            [[steps]]
+            label = "both let go"
+            at = 100
+            set = {{ r = 0, s = 0 }}
+            [rules]
+            critical_race = "allowed"
+            [sweep]
+            samples = 200
+            [reference]
+            [reference.gates]
+            {wanted}
+            "#
+        ))
+    };
+    let either = "q = { nor = [\"r\", \"other\"] }\nother = { nor = [\"s\", \"q\"] }";
+    latch(either).is(Call::NoFailureFound, &[]);
+    // resetting wins
+    let reset = latch("q = { expr = \"!r & (s | q)\" }");
+    reset.is(Call::Broken, &["not-in-reference", "rests at q=1, the reference allows q=0"]);
+    let window = &reset.review.sweep.windows[0];
+    assert_eq!(window.outcomes.len(), 2);
+    for outcome in &window.outcomes {
+        let q = reset.scenario.circuit.net("q").unwrap();
+        assert_eq!(outcome.breaks_rule, outcome.state.get(q.index()) == Value::One, "{outcome:?}");
+    }
+    let finding = &reset.review.sweep.findings[0];
+    assert_eq!(finding.subject.kind, Kind::NotInReference);
+    assert_eq!(finding.count, window.outcomes.iter().filter(|it| it.breaks_rule).map(|it| it.count).sum::<u64>());
+}
+
+#[test]
+fn a_reference_that_is_too_much_to_follow_leaves_the_verdict_undecided() {
+    // 14 gates of one ring that all want to rise together
+    let ring: String = (0..14).map(|at| format!("g{at} = {{ nor = [\"stop\", \"g{}\"] }}\n", (at + 1) % 14)).collect();
+    let file = |gates: &str| {
+        Reviewed::of(&format!(
+            r#"
+            outputs = ["g0", "g1"]
+            [inputs]
+            stop = 1
+            [gates]
+            {gates}
+            [[steps]]
+            set = {{ stop = 0 }}
+            [rules]
+            critical_race = "allowed"
+            oscillation = "allowed"
+            [sweep]
+            samples = 200
+            [reference]
+            [reference.gates]
+            {ring}
+            "#
+        ))
+    };
+    let pair =
+        file("g0 = { nor = [\"stop\", \"g1\"], delay = [4, 9] }\ng1 = { nor = [\"stop\", \"g0\"], delay = [4, 9] }");
+    pair.is(Call::Undecided, &["reference not judged: budget ran out in up to 200 draws"]);
+    // but where the reference has no such stable state it is broken all the same
+    file("g0 = { not = [\"stop\"] }\ng1 = { not = [\"stop\"] }")
+        .is(Call::Broken, &["rests at g0=1 g1=1, the reference allows g0=0 g1=1 or g0=1 g1=0"]);
+}
+
+#[test]
+fn after_power_up_the_reference_says_where_it_may_rest() {
+    let file = |wanted: &str| {
+        Reviewed::of(&format!(
+            r#"
+            begin = "random"
+            outputs = ["q"]
+            [inputs]
+            r = 0
+            s = 0
+            [gates]
+            q = {{ nor = ["r", "qn"], delay = [5, 9] }}
+            qn = {{ nor = ["s", "q"], delay = [4, 7] }}
+            [rules]
+            critical_race = "allowed"
+            [sweep]
+            samples = 200
+            [reference]
+            [reference.gates]
+            q = {{ {wanted} }}
+            "#
+        ))
+    };
+    // a random start is no state of rest to come from: either bit will do
+    file("expr = \"!r & (s | q)\"").is(Call::NoFailureFound, &[]);
+    file("expr = \"s & !r\"").is(Call::Broken, &["\"power-up\" (rests at q=1, the reference allows q=0)"]);
 }
 
 #[test]

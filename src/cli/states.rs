@@ -4,8 +4,7 @@ use std::process::ExitCode;
 
 use super::args::Looking;
 use super::common::{Failure, called, control, finish, folder, load, page, say, write};
-use crate::output::bundle::Bundle;
-use crate::output::{json, tables, text};
+use crate::output::{bundle, json, text};
 use crate::review;
 
 pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
@@ -24,8 +23,7 @@ pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
     } else if !input.quiet {
         say(&text::states(&scenario, &report, &page(called(input).as_deref(), "")))?;
     }
-    let mut bundle = Bundle::default();
-    bundle.add("states.csv", tables::states(&scenario, &report));
+    let mut bundle = bundle::of_states(&scenario, &report);
     bundle.add("states.json", document);
     write(&bundle, &folder, input.quiet || input.json)?;
     Ok(ExitCode::SUCCESS)

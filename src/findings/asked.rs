@@ -1,8 +1,12 @@
 //! Everything that a scenario asks, as numbered questions: one for each rule pattern or net, and step.
 
+use std::sync::Arc;
+
 use rustc_hash::FxHashMap;
 
 use crate::circuit::{Circuit, NetId, NetSet};
+use crate::control::Control;
+use crate::flow::Allowed;
 use crate::scenario::{
     Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Scenario, Stimulus, Swallowed,
 };
@@ -121,6 +125,8 @@ pub struct Question {
 pub struct Asked {
     /// The questions, by number.
     pub questions: Vec<Question>,
+    /// Who knows what the reference allows, if there is one; shared by all judges.
+    pub allowed: Option<Arc<Allowed>>,
     /// The number of each question by what is asked.
     numbers: FxHashMap<Key, u32>,
 }
@@ -277,7 +283,8 @@ impl Asked {
         }
         let key = |q: &Question| (q.rule, q.index, q.net, q.moment);
         let numbers = questions.iter().enumerate().map(|(i, q)| (key(q), i as u32)).collect();
-        Asked { questions, numbers }
+        let allowed = |reference| Arc::new(Allowed::of(reference, &Control::default()));
+        Asked { questions, allowed: scenario.reference.clone().map(allowed), numbers }
     }
 
     /// The number of the question with these marks.

@@ -4,11 +4,13 @@
 //! known from the scenario, whatever the length of a run.
 
 mod asked;
+mod departure;
 mod judge;
 mod pulses;
 mod words;
 
 pub use crate::logic::Shape;
 pub use asked::{Asked, Pattern, Question, RuleKey};
+pub use departure::{Against, Departed, Departure};
 pub use judge::{Answers, Judge, Match, Seen, Sink, matches, matches_any};
 pub use words::{Fact, Kind, Measure, Reason, Subject};

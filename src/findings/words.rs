@@ -169,11 +169,13 @@ pub enum Reason {
     NotAnalysedYet,
     /// There were too many different states to keep and compare.
     TooManyStates,
+    /// What the reference can do was not found out.
+    GaveUp,
 }
 
 impl Reason {
     /// All reasons, in the order in which they are counted.
-    pub const ALL: [Reason; 8] = [
+    pub const ALL: [Reason; 9] = [
         Reason::NotReached,
         Reason::BeganBeforeRest,
         Reason::Oscillating,
@@ -182,6 +184,7 @@ impl Reason {
         Reason::Unresolved,
         Reason::NotAnalysedYet,
         Reason::TooManyStates,
+        Reason::GaveUp,
     ];
 
     /// The words used in every file and text.
@@ -195,6 +198,7 @@ impl Reason {
             Reason::Unresolved => "unresolved",
             Reason::NotAnalysedYet => "not analysed yet",
             Reason::TooManyStates => "too many different states",
+            Reason::GaveUp => "budget ran out",
         }
     }
 }

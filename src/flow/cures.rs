@@ -23,7 +23,7 @@ pub const MAX_SOURCES: usize = 16;
 pub const MAX_GATES: usize = 4096;
 
 /// Most steps of the search for cures in all: values of gates at 64 places at once, words of gates.
-pub const MAX_WORK: u64 = 400_000_000;
+pub const MAX_WORK: u64 = 1 << 24;
 
 /// Largest majority gate that is written as an expression.
 const MAX_MAJORITY: usize = 5;
@@ -48,8 +48,8 @@ struct Cone {
     /// The number in the cone of each net of the circuit that is in it.
     place: FxHashMap<NetId, NetId>,
     function: Vec<u64>,
-    /// The changes of the flow table as the sources see them: values before, sources that move. True if clean.
-    changes: Vec<((u32, u32), bool)>,
+    /// The changes of the flow table as the sources see them: values before, sources that move.
+    changes: Vec<(u32, u32)>,
 }
 
 impl<'a> Cures<'a> {
@@ -75,11 +75,12 @@ impl<'a> Cures<'a> {
         if cone.never_leaves(net, value) {
             return None;
         }
-        self.spend((cone.sources.len() as u64) << cone.sources.len())?;
-        let held = cone.prime(row, moves, value)?;
+        let (held, steps) = cone.prime(row, moves, value);
+        self.spend(steps)?;
+        let held = held?;
         let literals: Vec<(NetId, bool)> = held.iter().map(|&at| (cone.sources[at], row >> at & 1 == 1)).collect();
         let cure = Cure { expression: self.written(net, value, &literals)?, literals };
-        self.holds(&cone, built, value, &cure, (row, moves)).then_some(cure)
+        self.holds(&cone, built, value, &cure, (row, moves)).map(|()| cure)
     }
 
     fn cone(&mut self, net: NetId, built: bool) -> Option<Cone> {
@@ -132,14 +133,8 @@ impl<'a> Cures<'a> {
                 changes.insert((row, moves));
             }
         }
-        let mut changes: Vec<(u32, u32)> = changes.into_iter().collect();
-        changes.sort_unstable();
-        let open = Open::of(&own);
-        let mut trial = Trial { top, transients: Transients::new(&open), circuit: &own };
-        for change in changes {
-            let clean = self.clean(&mut trial, change)?;
-            cone.changes.push((change, clean));
-        }
+        cone.changes = changes.into_iter().collect();
+        cone.changes.sort_unstable();
         Some(cone)
     }
 
@@ -157,40 +152,42 @@ impl<'a> Cures<'a> {
 
     /// Does the net of a trial change no more than it must?
     fn clean(&mut self, trial: &mut Trial<'_>, (row, moves): (u32, u32)) -> Option<bool> {
-        let before = trial.transients.work;
+        let before = trial.transients.work();
         let verdict = trial.verdict(row, moves, before + (MAX_WORK - self.work));
-        self.spend(trial.transients.work - before + trial.circuit.gate_count() as u64)?;
+        self.spend(trial.transients.work() - before + trial.circuit.gate_count() as u64)?;
         Some(verdict == Some(Verdict::Clean))
     }
 
     /// Four things are checked in a network with the term built in: the function is the same; the net is clean for this
     /// change and its opposite; it is still clean for every change of the flow table for which it was; and the same of a
     /// network with the expression.
-    fn holds(&mut self, cone: &Cone, built: bool, value: bool, cure: &Cure, change: (u32, u32)) -> bool {
-        let with_term = cone.circuit(cone.with_term(value, cure));
-        if self.holds_in(cone, &with_term, last_net(&with_term), change).is_none() {
-            return false;
+    fn holds(&mut self, cone: &Cone, built: bool, value: bool, cure: &Cure, (row, moves): (u32, u32)) -> Option<()> {
+        let mut changes = vec![(row, moves), (row ^ moves, moves)];
+        let own = cone.circuit(cone.specs.clone());
+        let open = Open::of(&own);
+        let mut trial = Trial { top: last_net(&own), transients: Transients::new(&open), circuit: &own };
+        self.spend(cone.changes.len() as u64)?;
+        for change in cone.changes.iter().filter(|change| cone.term_moves(cure, **change)) {
+            if self.clean(&mut trial, *change)? {
+                changes.push(*change);
+            }
         }
-        let Some(specs) = cone.with_expression(self.circuit, cure) else { return false };
-        let written = cone.circuit(specs);
-        let top = last_net(&written);
+        let with_term = cone.circuit(cone.with_term(value, cure));
+        self.holds_in(cone, &with_term, last_net(&with_term), &changes)?;
+        let written = cone.circuit(cone.with_expression(self.circuit, cure)?);
         let parts = if built { Built::of(&written) } else { None };
-        self.holds_in(cone, parts.as_ref().map_or(&written, |parts| &parts.circuit), top, change).is_some()
+        let whole = parts.as_ref().map_or(&written, |parts| &parts.circuit);
+        self.holds_in(cone, whole, last_net(&written), &changes)
     }
 
-    fn holds_in(&mut self, cone: &Cone, circuit: &Circuit, top: NetId, (row, moves): (u32, u32)) -> Option<()> {
+    fn holds_in(&mut self, cone: &Cone, circuit: &Circuit, top: NetId, changes: &[(u32, u32)]) -> Option<()> {
         if self.table(circuit, top)? != cone.function {
             return None;
         }
         let open = Open::of(circuit);
         let mut trial = Trial { top, transients: Transients::new(&open), circuit };
-        for change in [(row, moves), (row ^ moves, moves)] {
-            self.clean(&mut trial, change)?.then_some(())?;
-        }
-        for (change, was_clean) in &cone.changes {
-            if *was_clean {
-                self.clean(&mut trial, *change)?.then_some(())?;
-            }
+        for change in changes {
+            self.clean(&mut trial, *change)?.then_some(())?;
         }
         Some(())
     }
@@ -245,13 +242,16 @@ impl Cone {
     }
 
     /// The sources that have to hold their values of `row` for the function to have this value; none that moves.
-    fn prime(&self, row: u32, moves: u32, value: bool) -> Option<Vec<usize>> {
+    /// Beside them the values that were looked at.
+    fn prime(&self, row: u32, moves: u32, value: bool) -> (Option<Vec<usize>>, u64) {
         let all = (1u32 << self.sources.len()) - 1;
         let mut held = all & !moves;
-        let within = |held: u32| {
+        let mut steps = 0;
+        let mut within = |held: u32| {
             let free = all & !held;
             let mut part = free;
             loop {
+                steps += 1;
                 let at = (row & held | part) as usize;
                 if (self.function[at >> 6] >> (at & 63) & 1 == 1) != value {
                     return false;
@@ -263,7 +263,7 @@ impl Cone {
             }
         };
         if !within(held) {
-            return None;
+            return (None, steps);
         }
         for at in 0..self.sources.len() {
             if held >> at & 1 == 1 && within(held & !(1 << at)) {
@@ -271,7 +271,23 @@ impl Cone {
             }
         }
         // a function that is constant needs no term but no gates
-        (held != 0).then(|| (0..self.sources.len()).filter(|at| held >> at & 1 == 1).collect())
+        let list = (held != 0).then(|| (0..self.sources.len()).filter(|at| held >> at & 1 == 1).collect());
+        (list, steps)
+    }
+
+    /// May the term change? One of its literals does, and no other keeps it from it. Else it is constant, and the net does
+    /// what it did or stays.
+    fn term_moves(&self, cure: &Cure, (row, moves): (u32, u32)) -> bool {
+        let mut moving = false;
+        for (net, bit) in &cure.literals {
+            let at = self.place[net].0;
+            match moves >> at & 1 == 1 {
+                true => moving = true,
+                false if (row >> at & 1 == 1) != *bit => return false,
+                false => {}
+            }
+        }
+        moving
     }
 
     /// The gates of the cone with the term as gates of its own.

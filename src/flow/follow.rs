@@ -70,3 +70,41 @@ pub fn outside<'a>(circuit: &'a Circuit, state: &Bits, bound: &State) -> Option<
     let differs = |net: usize| !bound.unknown.get(net) && bound.ones.get(net) != state.get(net);
     circuit.nets().find(|net| differs(net.index())).map(|net| circuit.name(net))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::flow::tests::scenario;
+    use crate::logic::Value;
+    use crate::statics::Race;
+
+    #[test]
+    fn methods_that_contradict_each_other_are_caught() {
+        let latch = scenario(
+            "outputs = [\"q\"]\n[inputs]\nr = 0\ns = 0\n[initial]\nq = 0\n[gates]\nq = { nor = [\"r\", \"qn\"] }\n\
+             qn = { nor = [\"s\", \"q\"] }\n",
+        );
+        let bits = |word: &str| Bits::of(word.chars().map(|letter| letter == '1').collect::<Vec<_>>().into_iter());
+        let said = |states: &[&str], cycles, bound: &State| {
+            let states = states.iter().map(|word| bits(word)).collect();
+            contradiction(&latch.circuit, &Outcome::Exact { states, cycles, race: Race::None }, bound)
+        };
+        let set = State::known(bits("0110"));
+        let mut open = State::known(bits("0000"));
+        for net in [2, 3] {
+            open.set(net, Value::X);
+        }
+        assert_eq!(said(&["0110"], 0, &set), None);
+        assert_eq!(said(&["0001", "0010"], 1, &open), None);
+        for (states, cycles, bound, what) in [
+            (&["0010"][..], 0, &set, "`s` has another value"),
+            (&["0011"], 0, &open, "not stable"),
+            (&["0110"], 1, &set, "lasting cycle"),
+            (&[], 0, &open, "neither rest"),
+        ] {
+            let said = said(states, cycles, bound).unwrap_or_default();
+            assert!(said.contains(what), "{said}");
+        }
+        assert_eq!(contradiction(&latch.circuit, &Outcome::Bound(open.clone()), &open), None);
+    }
+}

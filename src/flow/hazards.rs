@@ -15,10 +15,14 @@
 //! All this is whatever the delays of gates *and wires*. With wires that take no time, and with what is known of delays,
 //! a hazard may be unable to show: that is for the other views.
 //!
-//! What happens once feedback nets move, (x′, y) → (x′, y′), is not judged here: whether they win or lose a race is said of
-//! the whole transition, whether an input may be late behind them is the essential hazard. A hazard found here is real all the same when a feedback net
-//! moves later in the same transition: delays have no bound, so all of it can happen before. Only what is seen then is
-//! this and the rest: a static hazard of a net that goes on to change shows as a dynamic glitch.
+//! What happens once feedback nets move, (x′, y) → (x′, y′), is not judged here: whether they win or lose a race is said
+//! of the whole transition, whether an input may be late behind them is the essential hazard. A hazard found here is
+//! real all the same when a feedback net moves later in the same transition: delays have no bound, so all of it can happen
+//! before. Only what is seen then is this and the rest: a static hazard of a net that goes on to change shows as a dynamic
+//! glitch.
+//!
+//! The delay of a loop is thought to be at its feedback net. Cut elsewhere, the same pulse may appear as the hazard of another
+//! net of the loop.
 
 use rustc_hash::FxHashMap;
 
@@ -34,7 +38,7 @@ use crate::statics::transients::{Exhausted, Open, Transients, Verdict, longest_a
 pub const MAX_CHANGING: usize = 12;
 
 /// Most steps of the search in all: words of gates (a source read, a position of a lattice), values of functions.
-pub const MAX_WORK: u64 = 400_000_000;
+pub const MAX_WORK: u64 = 1 << 25;
 
 /// Most different cures of one hazard; states that need another have none.
 const CURES_EACH: usize = 8;
@@ -54,7 +58,7 @@ pub struct Hazards {
 /// The hazards of all transitions of a flow table, of these nets and of all feedback nets. Of the table, only the
 /// states and the changes are used, not what follows them.
 ///
-/// Only gates that may move are looked at, so the time goes with what moves, not with the circuit; after [`MAX_WORK`]
+/// Only gates that may move are looked at, so the time goes with what moves, not with the circuit; after `MAX_WORK`
 /// steps it ends, and the result says so.
 ///
 /// Errors: only [`FlowError::Cancelled`]. Panics if the table is not one of this circuit.
@@ -180,7 +184,7 @@ impl Search<'_> {
             };
             let transients = &mut built.view.transients;
             // one allowance for both
-            let spent = self.plain.transients.work;
+            let spent = self.plain.transients.work();
             transients.change(full, &moving, most.saturating_sub(spent))?;
             for gate in transients.looked_at().to_vec() {
                 let net = built.view.open.circuit.net_of(gate);
@@ -216,8 +220,8 @@ impl View<'_> {
         }
         let circuit = self.open.circuit;
         let sources: u64 = gates.iter().map(|gate| circuit.sources(*gate).len() as u64).sum();
-        self.transients.work += sources << inputs.len();
-        if self.transients.work > most {
+        self.transients.add_work(sources << inputs.len());
+        if self.transients.work() > most {
             return Err(Exhausted);
         }
         // values on the way, of the nets that move; a feedback net among them is seen at its old value

@@ -11,19 +11,25 @@
 
 mod automaton;
 mod classes;
+mod compared;
 mod coverage;
 mod cures;
 mod follow;
 mod hazards;
 mod lay_out;
 mod outcomes;
+mod reference;
 mod table;
+#[cfg(test)]
+mod tests;
 mod timeline;
 mod tour;
 
+pub use compared::compared;
 pub use follow::{follow, outside, winners_are_valid};
 pub use hazards::{Hazards, MAX_CHANGING, hazards};
 pub use lay_out::lay_out;
+pub use reference::{Allowed, Answer, Coming, List, Passed, View};
 pub use timeline::{Group, Timeline};
 pub use tour::{Tour, tour};
 
@@ -40,7 +46,7 @@ pub type StateNumber = u32;
 #[derive(Clone, Debug, Default)]
 pub struct FlowTable {
     /// The stable states looked at. Those that can be reached from the start come first, in the order in which they were
-    /// found; then the others, by input vector.
+    /// found; then the others, by input vector (where a limit cut these, what is found from them comes last).
     pub states: Vec<FlowState>,
     /// The states in which a run may begin: one at rest; after power-up all with these inputs.
     pub start: Vec<StateNumber>,
@@ -78,10 +84,12 @@ pub struct Transition {
     pub change: Change,
     /// What may follow.
     pub to: Reached,
-    /// Does Unger's test find an essential hazard: does one change of the input lead to another state than three? `None`
-    /// where the method does not say, or more than one input changes.
+    /// Does Unger's test find an essential hazard: in the flow table in which only the feedback nets take time, does one
+    /// change of the input lead to another state than three, each outcome unique? `None` where only a bound is known, the
+    /// test takes more than its effort, or not just one input changes.
     pub essential: Option<bool>,
-    /// For steps: is it sure that the step meets this state? Not after a race, an oscillation or a ternary bound.
+    /// For steps: is it sure that the step meets this state? Not after power-up, a race, an oscillation or a ternary bound,
+    /// until a step leads to one state from all that may be (by ternary simulation, or because each outcome is unique).
     pub sure: bool,
 }
 
@@ -197,7 +205,8 @@ pub struct Hazard {
     pub change: Change,
     /// From how many states of the table (for a step: that it can meet) this change has it.
     pub states: u64,
-    /// How to be rid of it from all these states, verified; only for static logic hazards.
+    /// How to be rid of it from all these states, verified; only for static logic hazards, and only if it brings no new
+    /// hazard of the net for any change of the table.
     pub cure: Option<Cure>,
 }
 
@@ -351,7 +360,9 @@ pub fn flow(scenario: &Scenario, state_variables: &[NetId], control: &Control) -
     let automaton = Automaton::of(scenario, &table, state_variables);
     let found = hazards(&scenario.circuit, &scenario.watched, &table, control)?;
     let (hazards, hazards_truncated, hazards_not_judged) = (found.list, found.truncated, found.not_judged);
-    // the comparison with the reference reads the finished table
-    let compared = None;
+    let compared = match &scenario.reference {
+        Some(reference) => Some(compared(scenario, &Allowed::of(reference.clone(), control), &table, control)?),
+        None => None,
+    };
     Ok(Flow { table, coverage, automaton, hazards, hazards_truncated, hazards_not_judged, compared })
 }

@@ -13,7 +13,9 @@ use crate::circuit::{Circuit, NetId};
 use crate::control::Control;
 use crate::logic::{Bits, State, Value};
 use crate::scenario::Scenario;
-use crate::statics::{Change, GaveUp, Outcome, bound, bound_restless, outcome_of_many, stable_states, ternary};
+use crate::statics::{
+    Change, GaveUp, Next, Outcome, bound, bound_restless, fundamental, outcome_of_many, stable_states, ternary,
+};
 
 /// Most nodes of the decision diagram that lists the stable states that agree with a bound.
 const NODES: usize = 1 << 13;
@@ -32,6 +34,8 @@ pub(super) struct Outcomes<'a> {
     numbers: FxHashMap<Bits, StateNumber>,
     asked: FxHashMap<Question, u32>,
     found: Vec<Found>,
+    /// What follows the change of an input where only the feedback nets take time.
+    nexts: FxHashMap<(Bits, NetId), Next>,
     /// Values of nets computed so far, about: a measure of the work done.
     pub work: usize,
     /// What is left for the multiple-winner method, in evaluations of gates and firings.
@@ -74,6 +78,7 @@ impl<'a> Outcomes<'a> {
             numbers: FxHashMap::default(),
             asked: FxHashMap::default(),
             found: Vec::new(),
+            nexts: FxHashMap::default(),
             work: 0,
             effort,
             too_much: 0,
@@ -119,13 +124,6 @@ impl<'a> Outcomes<'a> {
             Some(state) => State::known(self.states[state as usize].clone()),
             None => found.bound.clone(),
         }
-    }
-
-    /// What may follow the change of one input, if that was asked before.
-    fn known_after(&self, from: StateNumber, input: NetId) -> Option<&Reached> {
-        let change = Change::of_one(&self.states[from as usize], input);
-        let at = self.asked.get(&(from, change, false))?;
-        Some(&self.found[*at as usize].to)
     }
 
     /// Of a change only what moves counts; one input alone cannot come apart.
@@ -231,21 +229,36 @@ impl<'a> Outcomes<'a> {
         FlowError::Contradiction(format!("from the stable state {{ {before} }}, after {{ {after} }}: {what}"))
     }
 
-    /// Unger's test for an essential hazard (Unger 1959): does one change of the input lead to another state than three,
-    /// there, back and there again? Outcomes that are not unique have none. `None` where the method does not say, or was
-    /// not asked.
-    pub fn essential(&self, from: StateNumber, input: NetId) -> Option<bool> {
-        let mut at = from;
+    /// Unger's test for an essential hazard (Unger 1959) in the flow table in which only the feedback nets take time: does
+    /// one change of the input lead to another state than three, there, back and there again? Outcomes that are not unique
+    /// have none. `None` where that takes more than its effort.
+    pub fn essential(&mut self, from: StateNumber, input: NetId) -> Result<Option<bool>, FlowError> {
+        let mut at = self.states[from as usize].clone();
         let mut first = None;
         for _ in 0..3 {
-            let to = self.known_after(at, input)?;
-            at = match (to.only(), to) {
-                (Some(state), _) => state,
-                (None, Reached::Exact { .. }) => return Some(false),
-                (None, Reached::Bound { .. }) => return None,
+            at = match self.next(at, input)? {
+                Next::One(state) => state,
+                Next::Several => return Ok(Some(false)),
+                Next::Unknown => return Ok(None),
             };
-            first = first.or(Some(at));
+            first.get_or_insert_with(|| at.clone());
         }
-        Some(first != Some(at))
+        Ok(Some(first != Some(at)))
+    }
+
+    /// What follows the change of one input where only the feedback nets take time.
+    fn next(&mut self, from: Bits, input: NetId) -> Result<Next, FlowError> {
+        let asked = (from, input);
+        if let Some(known) = self.nexts.get(&asked) {
+            return Ok(known.clone());
+        }
+        let change = Change::of_one(&asked.0, input);
+        let mut left = self.effort.min(EFFORT_OF_ONE);
+        let given = left;
+        let next = fundamental(self.circuit, &asked.0, &change, &mut left, self.control)
+            .map_err(|_: GaveUp| FlowError::Cancelled)?;
+        self.effort -= given - left;
+        self.nexts.insert(asked, next.clone());
+        Ok(next)
     }
 }

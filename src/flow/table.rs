@@ -250,16 +250,18 @@ impl Making<'_> {
     }
 
     fn finish(mut self, reachable: usize, complete: bool) -> Result<FlowTable, FlowError> {
-        let outcomes = &self.outcomes;
         for transition in self.table.steps.iter_mut().chain(&mut self.table.single) {
-            let before = &outcomes.states[transition.from as usize];
+            let before = &self.outcomes.states[transition.from as usize];
             if let (Reached::Exact { .. }, Some(input)) = (&transition.to, transition.change.single(before)) {
-                transition.essential = outcomes.essential(transition.from, input);
+                if self.control.cancelled() {
+                    return Err(FlowError::Cancelled);
+                }
+                transition.essential = self.outcomes.essential(transition.from, input)?;
             }
         }
         self.table.states_truncated |= !complete;
-        if outcomes.too_much > 0 {
-            let count = outcomes.too_much;
+        if self.outcomes.too_much > 0 {
+            let count = self.outcomes.too_much;
             let outcomes = if count == 1 { "1 outcome takes".into() } else { format!("{count} outcomes take") };
             self.table.notes.push(format!(
                 "{outcomes} more than the budget of the multiple-winner method; ternary simulation bounds what may follow"

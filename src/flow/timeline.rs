@@ -45,8 +45,9 @@ pub struct Timeline<'a> {
     stimulus: &'a Stimulus,
     /// The next listed step.
     step: usize,
-    /// Placed instant of the listed step before, in fs; also the instant of the group before, if that is later.
+    /// Placed instant of the listed step before, in fs.
     last_step: u64,
+    /// Instant of the group before, in fs; once a step has waited, counted from anywhere.
     now: u64,
     cases: Vec<ClockCase>,
     /// The moment of the first edge of each clock.
@@ -170,8 +171,11 @@ pub(super) fn notes(scenario: &Scenario) -> Vec<String> {
             "step \"{first}\"{more} waits for a pattern: this view takes it that the pattern comes, after all clocks have ended"
         ));
     }
-    let timed = stimulus.steps.iter().any(|step| matches!(step.place, Place::At(_) | Place::After(_)));
-    if timed || !stimulus.clocks.is_empty() {
+    let is_timed = |step: &Step| matches!(step.place, Place::At(_) | Place::After(_));
+    let timed = stimulus.steps.iter().any(is_timed);
+    // a run that begins at rest is so before the first of all moments
+    let first = usize::from(scenario.begin_window().is_none());
+    if stimulus.steps.iter().skip(first).any(is_timed) || !stimulus.clocks.is_empty() {
         notes.push(
             "steps placed by time and clock edges are taken to come at rest: this view knows no delays, so it cannot tell \
              whether they do"
@@ -195,4 +199,189 @@ pub(super) fn notes(scenario: &Scenario) -> Vec<String> {
         );
     }
     notes
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::tests::scenario;
+
+    use super::*;
+
+    /// The groups as text: label, changes, and what is special of them.
+    fn groups(stimulus: &str) -> Vec<String> {
+        let circuit = r#"
+            outputs = ["out"]
+            [gates]
+            out = { or = ["a", "b", "tick", "tock"] }
+            [inputs]
+            a = 0
+            b = 0
+            tick = 0
+            tock = 1
+        "#;
+        let scenario = scenario(&format!("{circuit}{stimulus}"));
+        let name = |group: &Group| scenario.stimulus.moments[group.moment as usize].label.clone();
+        Timeline::of(&scenario.stimulus)
+            .map(|group| {
+                let set: Vec<String> = group
+                    .change
+                    .set
+                    .iter()
+                    .map(|(net, bit)| format!("{}={}", scenario.circuit.name(*net), u8::from(*bit)))
+                    .collect();
+                let apart = if group.change.apart { " apart" } else { "" };
+                let restless = if group.restless { " restless" } else { "" };
+                format!("{}: {}{apart}{restless}", name(&group), set.join(" "))
+            })
+            .collect()
+    }
+
+    #[test]
+    fn clock_edges_and_steps_come_by_time() {
+        // tick rises at 5 and 15, falls at 10 and 20; step 1 comes with the first fall, step 3 once all is over
+        let all = groups(
+            r#"
+            [[clocks]]
+            net = "tick"
+            first = 5
+            period = 10
+            high = 5
+            count = 2
+            [[steps]]
+            at = [9, 11]
+            set = { a = 1 }
+            [[steps]]
+            after = 2
+            set = { b = 1 }
+            [[steps]]
+            set = { a = 0 }
+            [[steps]]
+            after = 0
+            set = { b = 0 }
+            [[steps]]
+            after = 3
+            set = { a = 1 }
+            "#,
+        );
+        assert_eq!(
+            all,
+            [
+                "tick rise 1: tick=1",
+                "step 1: a=1 tick=0",
+                "step 2: b=1",
+                "tick rise 2: tick=1",
+                "tick fall 2: tick=0",
+                "step 3: a=0 b=0",
+                "step 5: a=1",
+            ]
+        );
+    }
+
+    #[test]
+    fn two_clocks_of_one_instant_are_one_group() {
+        // tock starts at 1, so it falls first; in typical runs it is at 0 from 3 to 6
+        let all = groups(
+            r#"
+            [[clocks]]
+            net = "tock"
+            first = [2, 4]
+            period = 6
+            high = 3
+            count = 1
+            jitter = 1
+            [[clocks]]
+            net = "tick"
+            first = 6
+            period = 9
+            high = 1
+            count = 1
+            "#,
+        );
+        assert_eq!(all, ["tock fall 1: tock=0", "tock rise 1: tick=1 tock=1", "tick fall 1: tick=0"]);
+    }
+
+    #[test]
+    fn waiting_steps_are_groups_of_their_own() {
+        let all = groups(
+            r#"
+            [[steps]]
+            set = { a = 1 }
+            [[steps]]
+            rest = 0
+            set = { a = 0 }
+            [[steps]]
+            when = { out = 1 }
+            set = { b = 1 }
+            [[steps]]
+            after = 0
+            set = { a = 1 }
+            "#,
+        );
+        assert_eq!(all, ["step 1: a=1", "step 2: a=0", "step 3: a=1 b=1"]);
+    }
+
+    #[test]
+    fn skew_bounce_and_repeats_within_one_instant_are_told() {
+        let all = groups(
+            r#"
+            [[steps]]
+            set = { a = 1, b = 1 }
+            skew = [0, 4]
+            [[steps]]
+            set = { a = 0, b = 0 }
+            skew = [3, 3]
+            [[steps]]
+            set = { a = 1 }
+            bounce = { lasting = 4, pulses = [0, 2] }
+            [[steps]]
+            set = { b = 1 }
+            [[steps]]
+            after = 0
+            set = { a = 0, b = 0 }
+            skew = [0, 4]
+            "#,
+        );
+        assert_eq!(
+            all,
+            ["step 1: a=1 b=1 apart", "step 2: a=0 b=0", "step 3: a=1 restless", "step 4: a=0 b=0 apart restless",]
+        );
+    }
+
+    #[test]
+    fn the_last_word_of_one_instant_counts() {
+        let all = groups(
+            r#"
+            [[steps]]
+            at = 1
+            set = { a = 1, b = 1 }
+            [[steps]]
+            at = 1
+            set = { a = 0 }
+            "#,
+        );
+        assert_eq!(all, ["step 1: a=0 b=1"]);
+    }
+
+    #[test]
+    fn a_long_clock_is_not_unrolled() {
+        let text = r#"
+            outputs = ["out"]
+            [inputs]
+            tick = 0
+            [gates]
+            out = { buf = ["tick"] }
+            [[clocks]]
+            net = "tick"
+            first = 1
+            period = 2
+            high = 1
+            count = 400000
+        "#;
+        let scenario = scenario(text);
+        let mut timeline = Timeline::of(&scenario.stimulus);
+        let first: Vec<u32> = timeline.by_ref().take(3).map(|group| group.moment).collect();
+        assert_eq!(first, [0, 1, 2]);
+        assert_eq!(timeline.edges.len(), 1, "one edge of each clock waits");
+        assert_eq!(timeline.count(), 799_997);
+    }
 }

@@ -7,9 +7,10 @@ use std::path::{Path, PathBuf};
 
 use crate::circuit::NetId;
 use crate::findings::{Asked, Kind, Subject};
+use crate::output::flow_map::{self, Map};
 use crate::output::waves::{self, Nets, Picture};
-use crate::output::{charts, json, tables, words};
-use crate::review::{Review, RunReport};
+use crate::output::{charts, flow_tables, json, tables, words};
+use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
 use crate::time::Time;
 
@@ -112,7 +113,7 @@ pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::Sweep
 }
 
 /// The files of a review: `result.json`, `waves-typical`, a `waves-<kind>-<net or pattern>-<step>` for each of the worst
-/// findings whose failing case was run (at most [`MOST_PICTURES`]), the files of the sweep, `states.csv`.
+/// findings whose failing case was run (at most [`MOST_PICTURES`]), the files of the sweep and of the flow table.
 pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("result.json", json::review(scenario, review));
@@ -144,7 +145,17 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     }
     let sweep = of_sweep(scenario, &review.asked, &review.sweep);
     bundle.files.extend(sweep.files);
-    bundle.add("states.csv", tables::states(scenario, &review.states));
+    bundle.files.extend(of_states(scenario, &review.states).files);
+    bundle
+}
+
+/// The files of a flow table: `states.svg`, `states.csv`, `transitions.csv`.
+pub fn of_states(scenario: &Scenario, report: &StatesReport) -> Bundle {
+    let mut bundle = Bundle::default();
+    let map = Map { scenario, flow: &report.flow, state_variables: &report.state_variables, id: "states" };
+    bundle.add("states.svg", flow_map::svg(&map));
+    bundle.add("states.csv", flow_tables::states(scenario, report));
+    bundle.add("transitions.csv", flow_tables::transitions(scenario, report));
     bundle
 }
 

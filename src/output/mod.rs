@@ -7,6 +7,9 @@
 mod assumptions;
 pub mod bundle;
 pub mod charts;
+pub mod flow_map;
+pub mod flow_tables;
+mod flow_words;
 mod ink;
 pub mod instance;
 pub mod json;

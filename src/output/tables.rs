@@ -1,9 +1,8 @@
 //! Results as CSV. Units stand in the headers; what is missing is an empty field, never 0; the order is fixed.
 
 use crate::findings::{Asked, Reason};
-use crate::logic::Bits;
 use crate::output::words::{self, six};
-use crate::review::{Cell, Compared, StatesReport, compare};
+use crate::review::{Cell, Compared, compare, departure_words};
 use crate::scenario::{Condition, Scenario};
 use crate::sweep::{SweepReport, Worst};
 use crate::time::Decimal;
@@ -26,7 +25,7 @@ fn name(field: Option<&str>) -> String {
     field.unwrap_or_default().to_string()
 }
 
-fn yes_no(yes: bool) -> String {
+pub(super) fn yes_no(yes: bool) -> String {
     if yes { "yes" } else { "no" }.to_string()
 }
 
@@ -56,8 +55,9 @@ pub fn outcomes(scenario: &Scenario, report: &SweepReport) -> String {
     })
 }
 
-/// Findings, worst first, those of each condition after those of the file's own delays, with the keys of the JSON as columns. `worst` has two columns, one for times and one for shares
-/// of a delay.
+/// Findings, worst first, those of each condition after those of the file's own delays, with the keys of the JSON as
+/// columns. `worst` has two columns, one for times and one for shares of a delay. What departed from the reference has the
+/// states of its first sample, all nets, and the compared nets that the reference allows.
 pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
     let unit = scenario.unit;
     write(|to| {
@@ -86,6 +86,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
             "tie",
             "sample",
             "worst_sample",
+            "reference: before",
+            "reference: reached",
+            "reference: allowed",
         ])?;
         let nominal = report.findings.iter().map(|it| (Condition::NOMINAL, it));
         let others = report.conditions.iter();
@@ -98,6 +101,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
                 Some(Worst::Share(share)) => (String::new(), six(share).to_string()),
                 None => (String::new(), String::new()),
             };
+            let against = finding.against.as_ref().map(|it| departure_words(scenario, it, true));
+            let (before, reached, allowed) =
+                against.map_or_else(Default::default, |it| (it.before.unwrap_or_default(), it.reached, it.allowed));
             to.write_record([
                 condition.to_string(),
                 named.kind.to_string(),
@@ -123,6 +129,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
                 name(finding.tie.map(words::tie)),
                 or_empty(finding.sample),
                 or_empty(finding.worst_sample),
+                before,
+                reached,
+                allowed,
             ])?;
         }
         Ok(())
@@ -219,34 +228,6 @@ pub fn conditions(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> O
         }
         Ok(())
     }))
-}
-
-/// Stable states: one row a stable state, by input vector; an input vector without any has one row with empty gates.
-///
-/// Columns: states (how many the input vector has), then the nets in net order. A list that a limit cut ends early; the
-/// text and the JSON say so.
-pub fn states(scenario: &Scenario, report: &StatesReport) -> String {
-    let circuit = &scenario.circuit;
-    write(|to| {
-        to.write_record(std::iter::once("states").chain(circuit.nets().map(|net| circuit.name(net))))?;
-        for (inputs, states) in &report.inputs {
-            let mut row = |gate: &dyn Fn(usize) -> String| {
-                let values = circuit.nets().map(|net| match inputs.get(net.index()) {
-                    Some(bit) => u8::from(*bit).to_string(),
-                    None => gate(net.index()),
-                });
-                to.write_record(std::iter::once(states.len().to_string()).chain(values))
-            };
-            if states.is_empty() {
-                row(&|_| String::new())?;
-            }
-            for state in states {
-                let state: &Bits = state;
-                row(&|net| u8::from(state.get(net)).to_string())?;
-            }
-        }
-        Ok(())
-    })
 }
 
 /// Settling-time histogram of every step: settled windows by class, `from` up to but not including `to`.

@@ -116,6 +116,14 @@ pub(super) fn percent(share: f64) -> String {
     }
 }
 
+/// A sentence: a capital at its beginning and a full stop at its end.
+pub(super) fn sentence(text: &str) -> String {
+    let mut letters = text.trim().chars();
+    let first = letters.next().map_or_else(String::new, |first| first.to_uppercase().collect());
+    let stop = if text.trim_end().ends_with(['.', '!', '?']) { "" } else { "." };
+    format!("{first}{}{stop}", letters.as_str())
+}
+
 /// `1 step`, `3 steps`: a count with its noun.
 pub(super) fn many(number: u64, noun: &str) -> String {
     format!("{} {noun}{}", count(number), if number == 1 { "" } else { "s" })
@@ -137,6 +145,8 @@ mod tests {
         assert_eq!(count(1_234_567), "1,234,567");
         assert_eq!(count(999), "999");
         assert_eq!(many(1, "gate"), "1 gate");
+        assert_eq!(sentence("steps come at rest"), "Steps come at rest.");
+        assert_eq!(sentence("Two steps."), "Two steps.");
         assert_eq!(six(1.0 / 3.0), 0.333_333);
     }
 }

@@ -3,6 +3,7 @@
 
 mod conditions;
 mod contained;
+mod departure;
 mod report;
 mod single;
 mod verdict;
@@ -10,6 +11,7 @@ mod verdict;
 use std::collections::BTreeMap;
 
 pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, compare};
+pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
 pub use verdict::{grouped, verdict, with_typical};

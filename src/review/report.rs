@@ -2,7 +2,7 @@
 
 use crate::circuit::NetId;
 use crate::engine::Trace;
-use crate::findings::{Asked, Fact, Reason};
+use crate::findings::{Against, Asked, Fact, Kind, Reason};
 use crate::flow::Flow;
 use crate::instance::{Instance, Which};
 use crate::logic::Bits;
@@ -23,6 +23,16 @@ pub struct RunReport {
     pub judged: u64,
     /// Questions that could not be judged in it, by number, and why.
     pub not_judged: Vec<(u32, Reason)>,
+    /// Windows that ended where the reference does not allow it, in order.
+    pub against: Vec<Against>,
+}
+
+impl RunReport {
+    /// How the window that a fact is about departed from the reference, if that is what the fact says.
+    pub fn against(&self, fact: &Fact) -> Option<&Against> {
+        let mut all = self.against.iter().filter(|_| fact.subject.kind == Kind::NotInReference);
+        all.find(|it| Some(it.departure.moment) == fact.subject.moment)
+    }
 }
 
 /// The delay-free view.

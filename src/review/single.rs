@@ -35,10 +35,12 @@ pub fn run_one(
         return None;
     }
     let (trace, judge) = observers;
-    let Answers { mut facts, judged, mut not_judged } = judge.sink;
+    let Answers { mut facts, judged, mut not_judged, departures } = judge.sink;
     not_judged.sort_unstable();
     facts.sort_by_key(|fact| (!fact.breaks_rule, fact.subject.kind, std::cmp::Reverse(fact.measure), fact.subject));
-    Some(RunReport { which, instance, trace, facts, judged, not_judged })
+    let allowed = asked.allowed.iter();
+    let against = allowed.flat_map(|allowed| departures.iter().map(|it| it.against(allowed))).collect();
+    Some(RunReport { which, instance, trace, facts, judged, not_judged, against })
 }
 
 /// All stable states of a circuit, and what may follow what. What a budget or limit cuts is said in the report.

@@ -3,10 +3,11 @@
 use std::collections::BTreeMap;
 
 use super::conditions::{by_condition, together};
+use super::departure::departure_words;
 use super::report::{Call, RunReport, Verdict};
 use crate::circuit::NetId;
 use crate::delay::Marginal;
-use crate::findings::{Fact, Kind, Question, Reason, RuleKey, Subject};
+use crate::findings::{Against, Fact, Kind, Question, Reason, RuleKey, Subject};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, SweepReport};
 
@@ -48,7 +49,7 @@ pub fn with_typical(scenario: &Scenario, sweep: &SweepReport, typical: &RunRepor
     let drawn = |fact: &Fact| sweep.findings.iter().any(|it| it.subject == fact.subject && it.breaks_rule);
     let only = typical.facts.iter().filter(|fact| fact.breaks_rule && !drawn(fact)).map(|fact| {
         let rule = fact.subject.question.and_then(|q| sweep.rules.get(q as usize));
-        let what = what(scenario, &fact.subject, rule.map(|rule| &rule.question));
+        let what = what(scenario, &fact.subject, rule.map(|rule| &rule.question), typical.against(fact));
         format!("with typical delays, but in no draw: {what} (exactly equal delays?)")
     });
     let only: Vec<String> = only.collect();
@@ -121,7 +122,7 @@ fn broken(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
 }
 
 fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -> String {
-    let what = what(scenario, &finding.subject, rule.map(|rule| &rule.question));
+    let what = what(scenario, &finding.subject, rule.map(|rule| &rule.question), finding.against.as_ref());
     // a rule for the whole run may break after several steps: its share is that of the rule
     match rule.filter(|rule| rule.question.moment.is_none() && rule.broken > finding.count) {
         Some(rule) => {
@@ -132,7 +133,7 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
 }
 
 /// What was found, where, after which step.
-fn what(scenario: &Scenario, subject: &Subject, question: Option<&Question>) -> String {
+fn what(scenario: &Scenario, subject: &Subject, question: Option<&Question>, against: Option<&Against>) -> String {
     let circuit = &scenario.circuit;
     let what = match (question.and_then(|q| q.name.as_ref()), subject.shape) {
         (Some(name), _) => format!("\"{name}\" ({})", subject.kind.word()),
@@ -153,7 +154,11 @@ fn what(scenario: &Scenario, subject: &Subject, question: Option<&Question>) -> 
         Some(moment) => format!(" after \"{}\"", scenario.stimulus.moments[moment as usize].label),
         None => String::new(),
     };
-    format!("{what}{net}{step}")
+    let against = against.map_or_else(String::new, |against| {
+        let words = departure_words(scenario, against, false);
+        format!(" (rests at {}, the reference allows {})", words.reached, words.allowed)
+    });
+    format!("{what}{net}{step}{against}")
 }
 
 /// Questions that belong together: a rule, which of several, its net, and the step if it is a clause of its own.

@@ -118,7 +118,7 @@ impl Default for Plan {
 pub struct Reference {
     /// The network; same inputs, in the same order.
     pub circuit: Circuit,
-    /// Nets compared: of the circuit and of the reference.
+    /// Nets compared: of the circuit and of the reference, each once.
     pub compare: Vec<(NetId, RefNet)>,
 }
 

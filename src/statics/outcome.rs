@@ -1,7 +1,8 @@
 //! What may follow a change of inputs, whatever the delays.
 
 use super::change::Change;
-use super::winners::{Effort, winners};
+use super::explore::Effort;
+use super::winners::winners;
 use super::{GaveUp, ternary};
 use crate::circuit::{Circuit, NetId};
 use crate::control::Control;

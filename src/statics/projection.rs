@@ -12,10 +12,10 @@ use crate::circuit::{Circuit, NetId};
 
 /// The values that some nets take together in the stable states of a circuit.
 pub struct Projection {
-    nets: Vec<NetId>,
+    pub(super) nets: Vec<NetId>,
     /// of each net
-    levels: Vec<u32>,
-    product: Product,
+    pub(super) levels: Vec<u32>,
+    pub(super) product: Product,
 }
 
 impl Projection {

@@ -4,11 +4,12 @@
 //! the stable state before, and what its gate makes of the change is what is *wanted* of it. This is the first half of
 //! every move in fundamental mode: the logic sees the new inputs with the state as it was (Huffman 1954; Unger 1969).
 //!
-//! A [`Word`] is a start value and the greatest number of changes. The word of a gate follows from those of its sources:
-//! of all orders in which the changes of the sources may come, the one in which the function changes most often. An order
-//! is a monotone path through the lattice of positions (how many changes of each source have come), and the longest
-//! alternation over all paths is found by dynamic programming (algebra of transients: J. Brzozowski, Z. Ésik, Formal
-//! Methods in System Design 23 (2003) 223-256; closed forms for AND and OR there, too).
+//! A [`Word`] is a start value and the greatest number of changes, as far as it matters. The word of a gate follows from
+//! those of its sources: of all orders in which the changes of the sources may come, the one in which the function changes
+//! most often. An order is a monotone path through the lattice of positions (how many changes of each source have come), and
+//! the longest alternation over all paths is found by dynamic programming (algebra of transients: J. Brzozowski, Z. Ésik,
+//! Formal Methods in System Design 23 (2003) 223-256 \[PAGE <https://link.springer.com/article/10.1023/A:1026218512171>\]; closed
+//! forms for AND and OR there, too, from memory).
 //!
 //! What the number means. Let every wire between a net and a gate that reads it be a queue: it delivers each change once,
 //! in order, after any time, which may be another one for every change. Then the number is reached, and never exceeded.
@@ -20,24 +21,28 @@
 use std::cmp::Reverse;
 use std::collections::BinaryHeap;
 
+use rustc_hash::FxHashMap;
+
 use crate::circuit::{Circuit, Compiled, Function, GateId, NetId, NetSet};
 use crate::logic::{Bits, Shape};
 
-/// Most positions of a lattice: a gate whose sources have more is not counted exactly. Enough for one change of each net
-/// of the longest expression.
-pub const MAX_POSITIONS: usize = 1 << 16;
+/// Changes are counted up to here: more are 3 if odd and 4 if even. That is enough to find every hazard. Three changes of a
+/// gate need no more than three of each source, and the source then ends as it should with one more at most; so words that
+/// are cut in this way give words that are cut in this way, and none is longer or shorter for it up to the cut.
+pub const MAX_CHANGES: u32 = 4;
 
-/// Most changes that are counted.
-pub const MAX_CHANGES: u32 = (1 << 16) - 1;
+/// Most positions of a lattice; a gate whose sources have more is not counted exactly. Enough for one change of each net of
+/// the longest expression, or for six nets that may change as often as they like.
+pub const MAX_POSITIONS: usize = 1 << 16;
 
 /// What a net may do: it starts at a value and then changes so many times at most.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Word {
     /// Value before.
     pub start: bool,
-    /// Greatest number of changes; 0 exactly if the net never moves.
+    /// Greatest number of changes, up to [`MAX_CHANGES`]; 0 exactly if the net never moves.
     pub changes: u32,
-    /// Is it the greatest? Else a limit cut the counting: the net may do this, and perhaps more.
+    /// Is it the greatest? Else a lattice was too large: the net may do this, and perhaps more.
     pub exact: bool,
 }
 
@@ -48,7 +53,7 @@ pub enum Verdict {
     Clean,
     /// It may glitch.
     Hazard(Shape),
-    /// A limit cut the counting before it showed a hazard.
+    /// A lattice was too large, and what was looked at shows no hazard.
     Unknown,
 }
 
@@ -84,11 +89,10 @@ impl Word {
         Word { start: !self.start, ..self }
     }
 
-    /// Counted, cut to what is counted at most.
+    /// A word of a count that is a lower bound, and the greatest number if `exact`.
     fn of_count(start: bool, changes: u64, exact: bool) -> Word {
-        let most = u64::from(MAX_CHANGES) - u64::from((u64::from(MAX_CHANGES) ^ changes) & 1 == 1);
-        let cut = changes > most;
-        Word { start, changes: changes.min(most) as u32, exact: (exact && !cut) || changes == 0 }
+        let most = u64::from(MAX_CHANGES) - (changes & 1);
+        Word { start, changes: changes.min(most) as u32, exact: exact || changes == 0 || changes >= 3 }
     }
 }
 
@@ -207,10 +211,39 @@ fn turned(sum: u64, weight: u64, from: bool, to: bool) -> u64 {
     }
 }
 
-/// The word of a gate's output, from those of what it reads. `work` grows by the steps this takes.
-pub fn word_of(circuit: &Circuit, gate: GateId, source: impl Fn(NetId) -> Word, work: &mut u64) -> Word {
+/// Most lattices that are remembered.
+const MAX_MEMORY: usize = 1 << 16;
+
+/// A table, the words of its sources in five bits each, and their number.
+type Met = (u64, u32, u8);
+
+/// What counting has taken, and lattices that it has met: few are different.
+#[derive(Clone, Debug, Default)]
+pub struct Counting {
+    /// Steps so far: sources read, positions of lattices times their sources.
+    pub work: u64,
+    met: FxHashMap<Met, Word>,
+}
+
+impl Counting {
+    fn by_lattice(&mut self, form: &Compiled, base: u64, moving: &[(u64, Word)], key: Option<Met>) -> Word {
+        if let Some(word) = key.and_then(|key| self.met.get(&key)) {
+            return *word;
+        }
+        let word = by_lattice(form, base, moving, &mut self.work);
+        if let Some(key) = key
+            && self.met.len() < MAX_MEMORY
+        {
+            self.met.insert(key, word);
+        }
+        word
+    }
+}
+
+/// The word of a gate's output, from those of what it reads.
+pub fn word_of(circuit: &Circuit, gate: GateId, source: impl Fn(NetId) -> Word, counting: &mut Counting) -> Word {
     let sources = circuit.sources(gate);
-    *work += 1 + sources.len() as u64;
+    counting.work += 1 + sources.len() as u64;
     let words = || sources.iter().map(|(net, _)| source(*net));
     match circuit.function(gate) {
         Function::Buf => source(circuit.pins(gate)[0]),
@@ -235,15 +268,22 @@ pub fn word_of(circuit: &Circuit, gate: GateId, source: impl Fn(NetId) -> Word, 
             Word::of_count(circuit.wants(gate, |net| source(net).start), changes, exact)
         }
         Function::Majority | Function::Mux | Function::Expr(_) => {
-            let (mut base, mut moving) = (0, Vec::new());
+            let (mut base, mut moving, mut letters) = (0, Vec::new(), 0u32);
             for (net, weight) in sources {
                 let word = source(*net);
                 base += if word.start { *weight } else { 0 };
+                // at most six sources of a table, five bits each
+                letters = letters << 5 | word.changes << 2 | u32::from(word.start) << 1 | u32::from(word.exact);
                 if word.changes > 0 {
                     moving.push((*weight, word));
                 }
             }
-            by_lattice(circuit.compiled(gate), base, &moving, work)
+            let form = circuit.compiled(gate);
+            let key = match form {
+                Compiled::Table(table) => Some((*table, letters, sources.len() as u8)),
+                _ => None,
+            };
+            counting.by_lattice(form, base, &moving, key)
         }
     }
 }
@@ -305,8 +345,7 @@ pub struct Transients<'a> {
     queue: BinaryHeap<Reverse<u32>>,
     queued: Vec<u32>,
     looked_at: Vec<GateId>,
-    /// Steps of all changes so far: sources read, positions of lattices.
-    pub work: u64,
+    counting: Counting,
 }
 
 impl<'a> Transients<'a> {
@@ -321,7 +360,7 @@ impl<'a> Transients<'a> {
             queue: BinaryHeap::new(),
             queued: vec![0; gates],
             looked_at: Vec::new(),
-            work: 0,
+            counting: Counting::default(),
         }
     }
 
@@ -358,10 +397,10 @@ impl<'a> Transients<'a> {
         while let Some(Reverse(rank)) = self.queue.pop() {
             let gate = self.open.order[rank as usize];
             let net = circuit.net_of(gate);
-            let mut work = self.work;
-            let word = word_of(circuit, gate, |source| self.seen(state, source), &mut work);
-            self.work = work;
-            if self.work > most {
+            let mut counting = std::mem::take(&mut self.counting);
+            let word = word_of(circuit, gate, |source| self.seen(state, source), &mut counting);
+            self.counting = counting;
+            if self.counting.work > most {
                 return Err(Exhausted);
             }
             self.set(net, word);
@@ -371,6 +410,16 @@ impl<'a> Transients<'a> {
             }
         }
         Ok(())
+    }
+
+    /// Steps of all changes so far; see [`Counting::work`].
+    pub fn work(&self) -> u64 {
+        self.counting.work
+    }
+
+    /// Adds steps of other work on the same allowance.
+    pub fn add_work(&mut self, steps: u64) {
+        self.counting.work += steps;
     }
 
     fn set(&mut self, net: NetId, word: Word) {

@@ -10,7 +10,7 @@ use super::tally::{FactTally, Passage, Tally, WindowTally};
 use super::unseen::UnseenMass;
 use crate::delay::Marginal;
 use crate::engine::Hit;
-use crate::findings::{Asked, Kind, Match, Reason, RuleKey, Subject, matches, matches_any};
+use crate::findings::{Against, Asked, Kind, Match, Reason, RuleKey, Subject, matches, matches_any};
 use crate::logic::State;
 use crate::scenario::{Alternative, Permission, Scenario};
 use crate::time::Span;
@@ -52,7 +52,7 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
         })
         .collect();
 
-    let judging = Judging { scenario, tally };
+    let judging = Judging { scenario, asked, tally };
     let mut findings: Vec<Finding> =
         tally.facts.iter().map(|(subject, fact)| judging.finding(*subject, fact, judging.judged(subject))).collect();
     for (m, race) in races.iter().enumerate() {
@@ -231,6 +231,7 @@ fn window(scenario: &Scenario, asked: &Asked, moment: u32, tally: &WindowTally, 
     let breaks = |state: &State| {
         (!alternatives.is_empty() && matches_any(&alternatives, state) == Match::No)
             || forbidden_rest(state)
+            || tally.astray.has(state)
             || race.blamed.contains(state)
     };
     let mut outcomes: Vec<Outcome> = tally
@@ -309,6 +310,7 @@ fn bars(spread: &Spread) -> Vec<(Span, Span, u64)> {
 
 struct Judging<'a> {
     scenario: &'a Scenario,
+    asked: &'a Asked,
     tally: &'a Tally,
 }
 
@@ -369,6 +371,13 @@ impl Judging<'_> {
         (most, windows.iter().filter(|window| window.orders.is_truncated()).count() as u64)
     }
 
+    /// How the first sample departed from the reference.
+    fn against(&self, subject: &Subject) -> Option<Against> {
+        let moment = subject.moment.filter(|_| subject.kind == Kind::NotInReference)?;
+        let (_, departure) = self.tally.windows[moment as usize].departed.as_ref()?;
+        self.asked.allowed.as_ref().map(|allowed| departure.against(allowed))
+    }
+
     fn finding(&self, subject: Subject, fact: &FactTally, of: u64) -> Finding {
         let plan = &self.scenario.plan;
         let corners = plan.draw == Marginal::Corners;
@@ -393,6 +402,7 @@ impl Judging<'_> {
                 worst_share: fact.worst_board.0 as f64 / fact.worst_board.1 as f64,
             }),
             worst: fact.worst.map(|(measure, _)| Worst::of(subject.kind, measure)),
+            against: self.against(&subject),
             tie: None,
             sample: Some(fact.first),
             worst_sample: Some(fact.worst.map_or(fact.first, |(_, sample)| sample)),

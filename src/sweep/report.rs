@@ -1,7 +1,7 @@
 //! What a sweep says, in ids and exact times; names and texts are made where results are written.
 
 use crate::engine::Hit;
-use crate::findings::{Kind, Measure, Question, Reason, Subject};
+use crate::findings::{Against, Kind, Measure, Question, Reason, Subject};
 use crate::logic::State;
 use crate::scenario::{Condition, Plan};
 use crate::time::Span;
@@ -91,7 +91,7 @@ pub struct Outcome {
     pub count: u64,
     /// The first of them.
     pub first: u64,
-    /// Does resting here break a rule (`expect`, `never_at_rest`, or a forbidden critical race)?
+    /// Does resting here break a rule (`expect`, the reference, `never_at_rest`, or a forbidden critical race) in some sample?
     pub breaks_rule: bool,
 }
 
@@ -158,6 +158,8 @@ pub struct Finding {
     pub boards: Option<Boards>,
     /// The worst value seen.
     pub worst: Option<Worst>,
+    /// How the first sample departed from the reference, where that was found.
+    pub against: Option<Against>,
     /// What exact equality of times has to do with it; `None`: not analysed, or nothing.
     pub tie: Option<Tie>,
     /// The first sample that shows it.

@@ -106,6 +106,11 @@ impl<K: Key> Seen<K> {
         self.kept.iter().map(|(key, seen)| (key, *seen))
     }
 
+    /// Was this key seen, and is it kept?
+    pub fn has(&self, key: &K) -> bool {
+        self.kept.contains_key(key)
+    }
+
     /// Were there more keys than are kept?
     pub fn is_truncated(&self) -> bool {
         self.level > 0

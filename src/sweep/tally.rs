@@ -7,7 +7,7 @@ use serde::{Deserialize, Serialize};
 use super::seen::{Count, Key, Seen, mix};
 use super::spread::Spread;
 use crate::engine::{End, Hit};
-use crate::findings::{Asked, Fact, Measure, Reason, Seen as SeenWindow, Sink, Subject};
+use crate::findings::{Asked, Departed, Departure, Fact, Measure, Reason, Seen as SeenWindow, Sink, Subject};
 use crate::logic::State;
 use crate::scenario::Scenario;
 
@@ -84,6 +84,10 @@ pub struct WindowTally {
     pub passages: Seen<Passage>,
     /// Orders of loop nets in them.
     pub orders: Seen<Order>,
+    /// Of these, states that the reference does not allow, as the samples came to them.
+    pub astray: Seen<State>,
+    /// The lowest sample that came to one, and how.
+    pub departed: Option<(u64, Departure)>,
     /// Settling times of settled windows.
     pub settling: Spread,
     /// Lengths of cut windows.
@@ -191,6 +195,8 @@ impl WindowTally {
             outcomes: Seen::default(),
             passages: Seen::default(),
             orders: Seen::default(),
+            astray: Seen::default(),
+            departed: None,
             settling: Spread::new(),
             cut_after: Spread::new(),
             streak: Streak::default(),
@@ -253,6 +259,12 @@ impl WindowTally {
         self.outcomes.merge(&other.outcomes);
         self.passages.merge(&other.passages);
         self.orders.merge(&other.orders);
+        self.astray.merge(&other.astray);
+        if let Some((sample, departure)) = &other.departed
+            && self.departed.as_ref().is_none_or(|ours| *sample < ours.0)
+        {
+            self.departed = Some((*sample, departure.clone()));
+        }
         self.settling.merge(&other.settling);
         self.cut_after.merge(&other.cut_after);
     }
@@ -405,6 +417,14 @@ impl Sink for Tally {
         merge_worst(&mut tally.worst, fact.measure.map(|measure| (measure, self.sample)), |new, old| new > old);
         if let Some(board) = self.board {
             *self.part_boards.entry(board).or_default().facts.entry(fact.subject).or_insert(0) += 1;
+        }
+    }
+
+    fn departed(&mut self, departed: &Departed<'_>) {
+        let window = &mut self.windows[departed.moment as usize];
+        window.astray.add(departed.reached, 1, self.sample);
+        if window.departed.as_ref().is_none_or(|first| self.sample < first.0) {
+            window.departed = Some((self.sample, departed.kept()));
         }
     }
 

@@ -168,7 +168,7 @@ pub fn run(scenario: &Scenario, which: Which) -> RunReport {
     let mut trace = Trace::default();
     let program = Program::with_rest(scenario, &rest(scenario));
     assert!(program.machine().run(&instance, &Control::default(), &mut trace));
-    RunReport { which, instance, trace, facts: Vec::new(), judged: 1, not_judged: Vec::new() }
+    RunReport { which, instance, trace, facts: Vec::new(), judged: 1, not_judged: Vec::new(), against: Vec::new() }
 }
 
 pub fn net(scenario: &Scenario, name: &str) -> NetId {

@@ -2,7 +2,6 @@
 
 use stillgate::circuit::NetId;
 use stillgate::findings::{Asked, Kind, Reason, RuleKey, Shape, Subject};
-use stillgate::flow::Flow;
 use stillgate::instance::Which;
 use stillgate::logic::{Bits, State, Value};
 use stillgate::review::{Call, Review, StatesReport, Verdict};
@@ -13,6 +12,7 @@ use stillgate::sweep::{
 use stillgate::time::Span;
 
 use super::cases::{self, ns};
+use super::flows;
 
 /// A state from letters in net order: `0`, `1`, `X`.
 pub fn state(letters: &str) -> State {
@@ -81,6 +81,7 @@ pub fn finding(kind: Kind, net: Option<NetId>, moment: u32, count: u64) -> Findi
         interval: Some((0.9 * count as f64 / 10_000.0, 1.1 * count as f64 / 10_000.0)),
         boards: None,
         worst: None,
+        against: None,
         tie: None,
         sample: Some(17),
         worst_sample: Some(8123),
@@ -185,7 +186,7 @@ pub fn states(scenario: &Scenario) -> StatesReport {
         ],
         inputs_truncated: false,
         vectors: Some(["0".into(), "3".into(), "1".into()]),
-        flow: Flow::default(),
+        flow: flows::lock(scenario),
     }
 }
 

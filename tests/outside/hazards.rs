@@ -5,10 +5,11 @@ use std::collections::HashMap;
 use stillgate::circuit::{Circuit, Expr, Function, NetId};
 use stillgate::control::Control;
 use stillgate::flow::{Cause, FlowState, FlowTable, Hazard, Hazards, Reached, Transition, hazards};
-use stillgate::logic::{Bits, Shape};
-use stillgate::statics::{Change, Race};
+use stillgate::logic::{Bits, Shape, State, Value};
+use stillgate::statics::{Change, Race, ternary};
 
 use super::networks::{self, Draw, circuit, owned, stable_by_trying};
+use super::words_of_nets::cut;
 
 /// Every stable state and every change of one input, and these steps (inputs that change) from every state.
 fn table(circuit: &Circuit, steps: &[Vec<NetId>]) -> FlowTable {
@@ -347,4 +348,93 @@ fn function_hazards_of_well_known_gates() {
         "odd dynamic function Some(1) 8",
     ];
     assert_eq!(told, want);
+}
+
+/// Random networks with loops, every stable state and single-input change: static hazards by ternary simulation of the
+/// network with its feedback nets cut; cures by trying all values of its sources.
+#[test]
+fn random_networks_by_ternary_simulation_and_by_trying() {
+    let mut draw = Draw(0x4a2a_4d00);
+    let (mut statics, mut cures, mut dynamics, mut if_built) = (0, 0, 0, 0);
+    for case in 0..300 {
+        let (inputs, gates) = (2 + draw.below(3), 3 + draw.below(6));
+        let circuit = draw.network(inputs, gates, gates);
+        let names: Vec<&str> = circuit.gates().map(|gate| circuit.name(circuit.net_of(gate))).collect();
+        let found = of(&circuit, &names, &[]);
+        let table = table(&circuit, &[]);
+        let (network, shifted) = cut(&circuit);
+        let sources = inputs + circuit.feedback().len();
+        // the values of all nets of the cut network for all values of its sources
+        let rows: Vec<Bits> = (0..1usize << sources)
+            .map(|row| {
+                let mut full = Bits::of((0..network.net_count()).map(|net| net < sources && row >> net & 1 == 1));
+                for gate in network.evaluation_order() {
+                    let value = network.wants(*gate, |net| full.get(net.index()));
+                    full.set(network.net_of(*gate).index(), value);
+                }
+                full
+            })
+            .collect();
+        let seen = |net: NetId| match circuit.feedback().iter().position(|cut| *cut == net) {
+            Some(at) => inputs + at,
+            None => shifted(net).index(),
+        };
+        let row_of = |state: &Bits| {
+            let source = |at: usize| if at < inputs { NetId(at as u32) } else { circuit.feedback()[at - inputs] };
+            (0..sources).map(|at| usize::from(state.get(source(at).index())) << at).sum::<usize>()
+        };
+
+        let mut want: HashMap<(NetId, bool, (NetId, bool)), u64> = HashMap::new();
+        for transition in &table.single {
+            let state = &table.states[transition.from as usize].values;
+            let row = row_of(state);
+            let moved = transition.change.set[0];
+            let mut spread = State::known(rows[row].clone());
+            spread.set(moved.0.index(), Value::X);
+            ternary::spread(&network, &mut spread);
+            for gate in circuit.gates() {
+                let net = circuit.net_of(gate);
+                let there = shifted(net).index();
+                let (before, after) = (rows[row].get(there), rows[row ^ (1 << moved.0.0)].get(there));
+                if before == after && spread.get(there) == Value::X {
+                    *want.entry((net, before, moved)).or_default() += 1;
+                }
+            }
+        }
+        let mut have = HashMap::new();
+        for hazard in &found.list {
+            assert_eq!((hazard.cause, hazard.moment), (Cause::Logic, None), "one input has no function hazard");
+            if hazard.shape == Shape::Dynamic {
+                dynamics += 1;
+                assert_eq!(hazard.cure, None);
+                continue;
+            }
+            let one = hazard.shape == Shape::Static1;
+            let moved = hazard.change.set[0];
+            if hazard.built {
+                if_built += 1;
+            } else {
+                statics += 1;
+                *have.entry((hazard.net, one, moved)).or_default() += hazard.states;
+            }
+            let Some(cure) = &hazard.cure else { continue };
+            cures += 1;
+            let context = || format!("case {case}: {}", told(&circuit, hazard));
+            let state = &table.states[hazard.from as usize].values;
+            let holds = |full: &dyn Fn(NetId) -> bool| cure.literals.iter().all(|(net, bit)| full(*net) == *bit);
+            assert!(holds(&|net| state.get(net.index())), "{}", context());
+            assert!(cure.literals.iter().all(|(net, _)| *net != moved.0), "{}", context());
+            let expr = Expr::parse(&cure.expression).unwrap();
+            for full in &rows {
+                let value = full.get(shifted(hazard.net).index());
+                assert!(!holds(&|net| full.get(seen(net))) || value == one, "{}", context());
+                let pins =
+                    expr.nets().iter().map(|name| full.get(seen(circuit.net(name).unwrap()))).collect::<Vec<_>>();
+                assert_eq!(expr.value(&pins), value, "{}", context());
+            }
+        }
+        assert_eq!(have, want, "case {case}");
+    }
+    let met = [statics, cures, dynamics, if_built];
+    assert!(met.iter().all(|times| *times > 30), "{met:?}");
 }

@@ -2,7 +2,9 @@
 //! source. \[PAGE …\] marks a page on which the value was seen, \[computed\] a value from an independent throw-away
 //! program or by hand, "from memory" a source that was not at hand, "common practice, no source" a fact of the trade.
 
+mod eichelberger;
 mod engine;
+mod flow_tables;
 mod hazards;
 mod large_networks;
 mod networks;

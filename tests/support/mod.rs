@@ -1,6 +1,7 @@
 //! What several tests need: a slow engine written from the semantics alone, a short way to write a scenario down, and
 //! a record of all that an engine tells.
 
+pub mod explorer;
 pub mod heard;
 pub mod random_rules;
 pub mod random_worlds;
@@ -9,5 +10,6 @@ pub mod slow_engine;
 pub mod slow_judge;
 pub mod slow_recurrence;
 pub mod slow_sweep;
+pub mod small_nets;
 pub mod spread;
 pub mod world;

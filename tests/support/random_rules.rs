@@ -4,9 +4,9 @@ use std::collections::BTreeSet;
 use std::sync::Arc;
 
 use rand::RngExt;
-use rand::seq::IndexedRandom;
+use rand::seq::{IndexedMutRandom, IndexedRandom};
 use rand_chacha::ChaCha8Rng;
-use stillgate::circuit::NetId;
+use stillgate::circuit::{Circuit, Function, GateId, GateSpec, NetId};
 use stillgate::scenario::{
     Alternative, Before, EdgeCount, EdgeKind, EdgeSpec, Expectation, GlitchFree, Mark, MinPulse, Never, NeverAtRest,
     Oscillation, Permission, RefNet, Reference, Rules, Scenario, Swallowed, Timing,
@@ -107,10 +107,41 @@ pub fn add_rules(scenario: &mut Scenario, rng: &mut ChaCha8Rng, delays: Lengths)
         step.settle_within = rng.random_bool(0.2).then(|| bound(rng, delays));
         step.oscillation = rng.random_bool(0.3).then(|| *words.choose(rng).unwrap());
     }
-    if rng.random_bool(0.1) {
-        let compare = scenario.outputs.iter().map(|net| (*net, RefNet(*net))).collect();
-        let circuit = (*scenario.circuit).clone();
-        scenario.reference = Some(Arc::new(Reference { circuit, compare }));
+    if rng.random_bool(0.3) {
+        scenario.reference = Some(Arc::new(reference(scenario, rng, &gates)));
     }
     scenario.rules = Arc::new(rules);
+}
+
+/// A reference of a few gates: sometimes the circuit itself, perhaps with another gate in one place; else any network.
+fn reference(scenario: &Scenario, rng: &mut ChaCha8Rng, gates: &[NetId]) -> Reference {
+    let (circuit, inputs) = (&scenario.circuit, scenario.circuit.input_count());
+    let two = [Function::And, Function::Or, Function::Nand, Function::Nor, Function::Xor];
+    let compare: Vec<NetId> = gates.sample(rng, rng.clone().random_range(1..=2)).copied().collect();
+    if gates.len() <= 5 && rng.random() {
+        let spec = |gate: GateId| GateSpec {
+            name: circuit.name(circuit.net_of(gate)).into(),
+            function: circuit.function(gate).clone(),
+            pins: circuit.pins(gate).to_vec(),
+        };
+        let mut specs: Vec<GateSpec> = circuit.gates().map(spec).collect();
+        if let Some(changed) = specs.choose_mut(rng).filter(|it| it.pins.len() == 2) {
+            changed.function = two.choose(rng).unwrap().clone();
+        }
+        let names: Vec<&str> = circuit.inputs().map(|net| circuit.name(net)).collect();
+        let compare = compare.into_iter().map(|net| (net, RefNet(net))).collect();
+        return Reference { circuit: Circuit::new(&names, specs, vec![]).unwrap(), compare };
+    }
+    let count = rng.random_range(1..=4);
+    let spec = |gate: usize| {
+        let function = if rng.random_bool(0.2) { Function::Not } else { two.choose(rng).unwrap().clone() };
+        let pins = if function == Function::Not { 1 } else { 2 };
+        let pins = (0..pins).map(|_| NetId(rng.random_range(0..(inputs + count) as u32))).collect();
+        GateSpec { name: format!("ideal{gate}"), function, pins }
+    };
+    let specs = (0..count).map(spec).collect();
+    let names: Vec<&str> = circuit.inputs().map(|net| circuit.name(net)).collect();
+    let ideal = (0..count).map(|gate| RefNet(NetId((inputs + gate) as u32)));
+    let compare = compare.into_iter().zip(ideal).collect();
+    Reference { circuit: Circuit::new(&names, specs, vec![]).unwrap(), compare }
 }

@@ -106,7 +106,12 @@ impl Whole<'_> {
             let asked = self.asked.find(RuleKey::NeverAtRest, index as u32, None, Some(moment)).is_some();
             asked && shows(&values, &rule.state) == Some(true)
         });
-        unexpected || never || self.races(moment).is_some_and(|race| race.breaks(state))
+        let astray = self.runs.iter().any(|run| {
+            let facts = &mut run.said.facts.keys();
+            let astray = facts.any(|it| it.kind == Kind::NotInReference && it.moment == Some(moment));
+            astray && run.windows.iter().any(|window| window.moment == moment && window.state == *state)
+        });
+        unexpected || never || astray || self.races(moment).is_some_and(|race| race.breaks(state))
     }
 
     fn settling(&self, report: &WindowReport, named: &[(u64, &HeardWindow)], of: &str) {
@@ -296,6 +301,22 @@ impl Whole<'_> {
         });
         assert_eq!(said.worst, value, "{of}");
         assert_eq!(said.tie, None, "{of}: not analysed");
+        self.against(found, said, &of);
+    }
+
+    /// What departs from the reference is told as the first sample did it.
+    fn against(&self, found: &Found, said: &Finding, of: &str) {
+        let Some(against) = &said.against else {
+            return assert_ne!(said.subject.kind, Kind::NotInReference, "{of}");
+        };
+        let moment = said.subject.moment.expect("a moment");
+        let mut windows = self.runs[found.samples[0].0 as usize].windows.iter();
+        let window = windows.find(|window| window.moment == moment).expect("the first sample has the window");
+        let before = window.before.as_ref().filter(|_| self.scenario.begin_window() != Some(moment));
+        assert_eq!((against.departure.before.as_ref(), &against.departure.reached), (before, &window.state), "{of}");
+        let reference = self.scenario.reference.as_ref().expect("a reference");
+        let reached: Vec<bool> = reference.compare.iter().map(|(net, _)| window.state.ones.get(net.index())).collect();
+        assert!(!against.allowed.values.contains(&reached), "{of}: {reached:?} is allowed");
     }
 
     fn boards(&self, found: &Found) -> Option<Boards> {

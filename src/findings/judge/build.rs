@@ -2,6 +2,7 @@
 
 use super::edges::{MinPulse, Timing};
 use super::nets::{Count, NONE, Settle, Watch};
+use super::reference::AgainstReference;
 use super::sink::Sink;
 use super::span::Cone;
 use super::states::{Expect, Never, NotAtRest};
@@ -153,9 +154,7 @@ impl<S: Sink> Judge<S> {
         };
         let mut by_moment = vec![Vec::new(); moments];
         for (q, question) in asked.questions.iter().enumerate() {
-            if let Some(moment) = question.moment
-                && question.rule != RuleKey::Reference
-            {
+            if let Some(moment) = question.moment {
                 by_moment[moment as usize].push(q as u32);
             }
         }
@@ -168,7 +167,6 @@ impl<S: Sink> Judge<S> {
         let said = stimulus.moments.iter().map(|moment| stimulus.step_of(moment).and_then(|step| step.oscillation));
         let own_oscillation = said.clone().map(|own| own.is_some()).collect();
         let oscillation = said.map(|own| own.unwrap_or(rules.oscillation)).collect();
-        let references = asked.questions.iter().enumerate().filter(|(_, q)| q.rule == RuleKey::Reference);
         Judge {
             sink,
             inputs: circuit.input_count() as u32,
@@ -182,7 +180,6 @@ impl<S: Sink> Judge<S> {
                 Before::Forbidden => by_rule(RuleKey::BeforeRest, 0, None),
                 Before::Allowed => vec![NONE; moments],
             },
-            reference_questions: references.map(|(q, _)| q as u32).collect(),
             swallowed_broken: vec![false; swallowed_questions.len()],
             swallowed_questions,
             by_moment,
@@ -197,6 +194,7 @@ impl<S: Sink> Judge<S> {
             nevers,
             timings,
             min_pulses,
+            against_reference: AgainstReference::of(scenario, asked),
             never_dirty: false,
             timing_dirty: false,
             moment: None,

@@ -3,12 +3,14 @@
 mod build;
 mod edges;
 mod nets;
+mod reference;
 mod sink;
 mod span;
 mod states;
 
 use edges::{MinPulse, Timing};
 use nets::{Count, NONE, Settle, Watch};
+use reference::AgainstReference;
 pub use sink::{Answers, Seen, Sink};
 use span::{Cone, NetWindow, Shut, reason_of};
 use states::{Expect, Never, NotAtRest};
@@ -47,7 +49,6 @@ pub struct Judge<S> {
     race_questions: Vec<u32>,
     oscillation_questions: Vec<u32>,
     before_rest_questions: Vec<u32>,
-    reference_questions: Vec<u32>,
     swallowed_questions: Vec<(Option<NetId>, u32)>,
     /// Questions of each moment that wait for it to be reached.
     by_moment: Vec<Vec<u32>>,
@@ -64,6 +65,7 @@ pub struct Judge<S> {
     nevers: Vec<Never>,
     timings: Vec<Timing>,
     min_pulses: Vec<MinPulse>,
+    against_reference: Option<AgainstReference>,
     never_dirty: bool,
     timing_dirty: bool,
 
@@ -237,6 +239,10 @@ impl<S: Sink> Judge<S> {
             }
         }
 
+        if let Some(reference) = &mut self.against_reference {
+            reference.close(closing, self.has_before.then_some(&self.before), sink);
+        }
+
         for gate in self.swallowing.drain(..) {
             let worst = std::mem::take(&mut self.swallowed[gate as usize]);
             let net = NetId(self.inputs + gate);
@@ -348,6 +354,9 @@ impl<S: Sink> Observer for Judge<S> {
                     self.sink.fact(Fact { subject, breaks_rule: true, measure: None, place });
                 }
             }
+        }
+        if let Some(reference) = &mut self.against_reference {
+            reference.open(opening.moments);
         }
         self.moment = opening.moments.first().copied();
         self.oscillation_of.clear();
@@ -480,9 +489,6 @@ impl<S: Sink> Observer for Judge<S> {
                     self.sink.fact(Fact { subject, breaks_rule: true, measure: None, place: None });
                 }
             }
-        }
-        for question in &self.reference_questions {
-            self.sink.not_judged(*question, Reason::NotAnalysedYet);
         }
         if self.reached_count < self.reached.len() {
             let reason = match unseen {

@@ -1,7 +1,7 @@
 //! Where judges put their answers.
 
 use crate::engine::End;
-use crate::findings::{Fact, Reason};
+use crate::findings::{Departed, Departure, Fact, Reason};
 use crate::logic::State;
 use crate::time::Span;
 
@@ -13,6 +13,8 @@ pub trait Sink {
     fn not_judged(&mut self, question: u32, reason: Reason);
     /// Something was found; at most once a run for each subject.
     fn fact(&mut self, fact: Fact);
+    /// A window ended in a state that the reference does not allow; told before [`Sink::window`], once for each window.
+    fn departed(&mut self, _departed: &Departed<'_>) {}
     /// A moment came. `named` says whether the window is named after it.
     fn reached(&mut self, moment: u32, named: bool);
     /// A window ended.
@@ -47,6 +49,8 @@ pub struct Answers {
     pub judged: u64,
     /// Questions that could not be judged, and why.
     pub not_judged: Vec<(u32, Reason)>,
+    /// Windows that ended where the reference does not allow it.
+    pub departures: Vec<Departure>,
 }
 
 impl Sink for Answers {
@@ -58,6 +62,9 @@ impl Sink for Answers {
     }
     fn fact(&mut self, fact: Fact) {
         self.facts.push(fact);
+    }
+    fn departed(&mut self, departed: &Departed<'_>) {
+        self.departures.push(departed.kept());
     }
     fn reached(&mut self, _moment: u32, _named: bool) {}
     fn window(&mut self, _window: &Seen<'_>) {}

@@ -6,6 +6,7 @@
 //! limit cut has a key beside it that says so. Shares have six significant digits.
 
 mod check;
+mod flow;
 mod parts;
 mod review;
 mod run;

@@ -6,7 +6,9 @@ use serde_json::value::RawValue;
 
 use crate::circuit::{Circuit, NetId};
 use crate::delay::Billionths;
+use crate::findings::Against;
 use crate::logic::{State, Value};
+use crate::scenario::Scenario;
 use crate::sweep::Worst;
 use crate::time::{Decimal, Span, Time, Unit};
 
@@ -125,6 +127,33 @@ pub(super) fn values(
     value: impl Fn(NetId) -> Value,
 ) -> OneLine<Object<&str, Level>> {
     OneLine(Object(nets.map(|net| (circuit.name(net), Level(value(net)))).collect()))
+}
+
+/// How a window departed from the reference: values of all nets before (null if the step did not come at rest) and
+/// reached, and of the compared nets what is allowed; `allowed_truncated` if there may be more of that.
+#[derive(Serialize)]
+pub(super) struct Departed<'a> {
+    before: Option<OneLine<Object<&'a str, Level>>>,
+    reached: OneLine<Object<&'a str, Level>>,
+    allowed: Lines<Object<&'a str, Level>>,
+    allowed_truncated: bool,
+}
+
+impl<'a> Departed<'a> {
+    pub fn of(scenario: &'a Scenario, against: &Against) -> Departed<'a> {
+        let circuit = &*scenario.circuit;
+        let compared = scenario.reference.iter().flat_map(|reference| &reference.compare);
+        let names: Vec<&str> = compared.map(|(net, _)| circuit.name(*net)).collect();
+        let allowed = |values: &Vec<bool>| {
+            Object(names.iter().copied().zip(values.iter().map(|bit| Level(Value::from(*bit)))).collect())
+        };
+        Departed {
+            before: against.departure.before.as_ref().map(|it| state(circuit, it)),
+            reached: state(circuit, &against.departure.reached),
+            allowed: Lines(against.allowed.values.iter().map(allowed).collect()),
+            allowed_truncated: against.allowed.open,
+        }
+    }
 }
 
 /// A list whose entries stand on one line each.

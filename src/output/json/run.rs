@@ -2,7 +2,7 @@
 
 use serde::Serialize;
 
-use super::parts::{Exact, Level, Lines, Measured, Object, OneLine, state};
+use super::parts::{Departed, Exact, Level, Lines, Measured, Object, OneLine, state};
 use crate::engine::End;
 use crate::findings::Asked;
 use crate::output::words;
@@ -59,6 +59,8 @@ struct Found<'a> {
     step: Option<&'a str>,
     worst: Option<Measured>,
     place: Option<(Exact, Exact)>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    reference: Option<Departed<'a>>,
 }
 
 impl<'a> Run<'a> {
@@ -105,6 +107,7 @@ impl<'a> Run<'a> {
                 step: named.step,
                 worst: words::worst_of(fact).map(|worst| Measured::of(worst, unit)),
                 place: fact.place.map(|(from, to)| (Exact::time(from, unit), Exact::time(to, unit))),
+                reference: run.against(fact).map(|it| Departed::of(scenario, it)),
             }
         };
         let unjudged = |(number, reason): &(u32, crate::findings::Reason)| {

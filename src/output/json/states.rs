@@ -1,30 +1,21 @@
-//! Stable states.
+//! Stable states, and what may follow what.
 
-use serde::Serialize;
+use serde::ser::SerializeMap;
+use serde::{Serialize, Serializer};
 
+use super::flow;
 use super::parts::{Level, Lines, Object, OneLine, values};
 use crate::circuit::NetId;
-use crate::logic::Value;
+use crate::logic::{Bits, Value};
 use crate::output::words;
 use crate::review::StatesReport;
 use crate::scenario::Scenario;
 
-#[derive(Serialize)]
+/// The document, or the part of a review without `format`.
 pub(super) struct States<'a> {
-    #[serde(skip_serializing_if = "Option::is_none")]
+    scenario: &'a Scenario,
+    report: &'a StatesReport,
     format: Option<u32>,
-    count: Option<&'a str>,
-    feedback: OneLine<Vec<&'a str>>,
-    state_variables: OneLine<Vec<&'a str>>,
-    state_variables_exact: bool,
-    vectors: Option<Vectors<'a>>,
-    rows: Lines<Object<&'a str, &'static str>>,
-    rows_truncated: bool,
-    inputs: Vec<Vector<'a>>,
-    truncated: bool,
-    transitions: [(); 0],
-    transitions_truncated: bool,
-    transitions_analysed: bool,
 }
 
 /// Number of input vectors by how many stable states they have.
@@ -43,42 +34,65 @@ struct Vector<'a> {
 
 impl<'a> States<'a> {
     pub fn of(scenario: &'a Scenario, report: &'a StatesReport, format: Option<u32>) -> States<'a> {
-        let circuit = &*scenario.circuit;
+        States { scenario, report, format }
+    }
+
+    fn rows(&self) -> Lines<Object<&'a str, &'static str>> {
+        let names = words::nets(self.scenario, &self.report.variables);
         let row = |row: &Vec<Option<bool>>| {
             let letter = |value: &Option<bool>| match value {
                 None => "-",
                 Some(false) => "0",
                 Some(true) => "1",
             };
-            let names = words::nets(scenario, &report.variables);
-            Object(names.into_iter().zip(row.iter().map(letter)).collect())
+            Object(names.iter().copied().zip(row.iter().map(letter)).collect())
         };
-        let vector = |(inputs, states): &'a (Vec<bool>, _)| {
-            let input = |net: NetId| inputs.get(net.index()).map_or(Value::X, |bit| Value::from(*bit));
-            let states: &Vec<crate::logic::Bits> = states;
-            Vector {
-                inputs: values(circuit, circuit.inputs(), input),
-                states: states
-                    .iter()
-                    .map(|bits| values(circuit, circuit.nets(), |net| Value::from(bits.get(net.index()))))
-                    .collect(),
-            }
-        };
-        States {
-            format,
-            count: report.count.as_deref(),
-            feedback: OneLine(words::nets(scenario, &report.feedback)),
-            state_variables: OneLine(words::nets(scenario, &report.state_variables)),
-            state_variables_exact: report.state_variables_exact,
-            vectors: report.vectors.as_ref().map(|[none, one, several]| Vectors { none, one, several }),
-            rows: Lines(report.rows.iter().map(row).collect()),
-            rows_truncated: report.rows_truncated,
-            inputs: report.inputs.iter().map(vector).collect(),
-            truncated: report.inputs_truncated,
-            transitions: [],
-            transitions_truncated: false,
-            transitions_analysed: false,
+        Lines(self.report.rows.iter().map(row).collect())
+    }
+
+    fn vector(&self, (inputs, states): &'a (Vec<bool>, Vec<Bits>)) -> Vector<'a> {
+        let circuit = &*self.scenario.circuit;
+        let input = |net: NetId| inputs.get(net.index()).map_or(Value::X, |bit| Value::from(*bit));
+        Vector {
+            inputs: values(circuit, circuit.inputs(), input),
+            states: states
+                .iter()
+                .map(|bits| values(circuit, circuit.nets(), |net| Value::from(bits.get(net.index()))))
+                .collect(),
         }
+    }
+}
+
+impl Serialize for States<'_> {
+    fn serialize<S: Serializer>(&self, to: S) -> Result<S::Ok, S::Error> {
+        let (scenario, report, flow) = (self.scenario, self.report, &self.report.flow);
+        let vectors = report.vectors.as_ref().map(|[none, one, several]| Vectors { none, one, several });
+        let mut map = to.serialize_map(None)?;
+        if let Some(format) = self.format {
+            map.serialize_entry("format", &format)?;
+        }
+        map.serialize_entry("count", &report.count)?;
+        map.serialize_entry("feedback", &OneLine(words::nets(scenario, &report.feedback)))?;
+        map.serialize_entry("state_variables", &OneLine(words::nets(scenario, &report.state_variables)))?;
+        map.serialize_entry("state_variables_exact", &report.state_variables_exact)?;
+        map.serialize_entry("vectors", &vectors)?;
+        map.serialize_entry("rows", &self.rows())?;
+        map.serialize_entry("rows_truncated", &report.rows_truncated)?;
+        map.serialize_entry("inputs", &report.inputs.iter().map(|it| self.vector(it)).collect::<Vec<_>>())?;
+        map.serialize_entry("truncated", &report.inputs_truncated)?;
+        map.serialize_entry("table", &flow::table(scenario, flow))?;
+        map.serialize_entry("start", &flow::start(scenario, flow))?;
+        map.serialize_entry("transitions", &flow::transitions(scenario, flow))?;
+        let truncated = flow.table.states_truncated || flow.table.steps_truncated;
+        map.serialize_entry("transitions_truncated", &truncated)?;
+        map.serialize_entry("transition_notes", &flow.table.notes)?;
+        map.serialize_entry("coverage", &flow::coverage(scenario, flow))?;
+        map.serialize_entry("automaton", &flow::automaton(scenario, flow))?;
+        map.serialize_entry("hazards", &flow::hazards(scenario, flow))?;
+        map.serialize_entry("hazards_truncated", &flow.hazards_truncated)?;
+        map.serialize_entry("hazards_not_judged", &flow.hazards_not_judged)?;
+        map.serialize_entry("reference", &flow::reference(scenario, flow))?;
+        map.end()
     }
 }
 

@@ -2,7 +2,7 @@
 
 use serde::Serialize;
 
-use super::parts::{Exact, Level, Measured, Object, OneLine, state};
+use super::parts::{Departed, Exact, Level, Measured, Object, OneLine, state};
 use crate::findings::Asked;
 use crate::output::words::{self, six};
 use crate::review::{Verdict, by_condition};
@@ -100,6 +100,8 @@ struct Found<'a> {
     tie: Option<&'static str>,
     sample: Option<u64>,
     worst_sample: Option<u64>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    reference: Option<Departed<'a>>,
 }
 
 #[derive(Serialize)]
@@ -273,6 +275,7 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         tie: finding.tie.map(words::tie),
         sample: finding.sample,
         worst_sample: finding.worst_sample,
+        reference: finding.against.as_ref().map(|it| Departed::of(scenario, it)),
     }
 }
 

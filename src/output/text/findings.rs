@@ -2,15 +2,16 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use crate::findings::{Asked, Kind, RuleKey, Subject};
+use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
 use crate::output::words;
+use crate::review::departure_words;
 use crate::scenario::Scenario;
 use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
 /// Most findings told in full.
 const FULL: usize = 5;
 /// Most findings listed that break no rule.
-const LISTED: usize = 4;
+const LISTED: usize = 3;
 
 /// What a finding is about: `glitch static-0, open_lower, step together`.
 pub(super) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
@@ -101,6 +102,13 @@ struct Group<'a> {
     whole: Option<&'a RuleReport>,
 }
 
+/// What departed from the reference: `from call=1 permit=1 to permit=0; the reference allows permit=1`.
+pub(super) fn departure(scenario: &Scenario, against: &Against) -> String {
+    let words = departure_words(scenario, against, false);
+    let before = words.before.map_or_else(String::new, |before| format!("from {before} "));
+    format!("{before}to {}; the reference allows {}", words.reached, words.allowed)
+}
+
 /// Groups in the order of their worst findings.
 fn groups<'a>(asked: &Asked, report: &'a SweepReport, broken: bool) -> Vec<Group<'a>> {
     let rule = |subject: &Subject| {
@@ -157,6 +165,9 @@ pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, 
             let finding = group.worst;
             paper.hang(2, 4, Tone::Bad, &format!("{} {}", i + 1, group.about(scenario, asked)));
             paper.say(4, Tone::Plain, &group.figures());
+            if let Some(against) = &finding.against {
+                paper.say(4, Tone::Plain, &departure(scenario, against));
+            }
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
                 paper.whole(4, &page.replay(sample, None));
             }

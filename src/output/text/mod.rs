@@ -6,6 +6,7 @@
 mod check;
 mod conditions;
 mod findings;
+mod flow;
 mod notes;
 mod paper;
 mod review;

@@ -38,6 +38,8 @@ impl Tone {
 
 /// Widest and narrowest page, in columns.
 const WIDTHS: (usize, usize) = (60, 100);
+/// Before every line of a table.
+const INDENT: usize = 2;
 /// Between two columns of a table.
 const GAP: usize = 2;
 /// A column that may be cut is cut to this before others are dropped.
@@ -124,7 +126,7 @@ impl Paper {
 
     /// A table, indented by two.
     pub fn table(&mut self, table: &Table) {
-        let indent = 2;
+        let indent = INDENT;
         let (columns, widths) = table.fit(self.width - indent);
         let row = |cells: &dyn Fn(usize) -> String| {
             let mut line = " ".repeat(indent);
@@ -138,7 +140,7 @@ impl Paper {
             line.truncate(line.trim_end().len());
             line
         };
-        let head = row(&|column| table.columns[column].title.to_string());
+        let head = row(&|column| table.columns[column].title.clone());
         self.put(Tone::Quiet, &head);
         for (tone, cells) in &table.rows {
             let line = row(&|column| cells[column].clone());
@@ -234,17 +236,25 @@ impl Table {
         self.rows.push((tone, cells));
     }
 
+    /// Does all of it fit a page, with nothing cut or left out?
+    pub fn fits(&self, paper: &Paper) -> bool {
+        let room = paper.width - INDENT;
+        let whole: usize = self.natural().iter().sum::<usize>() + GAP * self.columns.len().saturating_sub(1);
+        whole <= room
+    }
+
+    /// The widths that show every cell whole.
+    fn natural(&self) -> Vec<usize> {
+        let width = |(c, column): (usize, &Column)| {
+            let cells = self.rows.iter().map(|row| row.1[c].chars().count());
+            cells.chain([column.title.chars().count()]).max().unwrap_or(0)
+        };
+        self.columns.iter().enumerate().map(width).collect()
+    }
+
     /// Which columns are shown, and how wide.
     fn fit(&self, room: usize) -> (Vec<usize>, Vec<usize>) {
-        let natural: Vec<usize> = self
-            .columns
-            .iter()
-            .enumerate()
-            .map(|(c, column)| {
-                let cells = self.rows.iter().map(|row| row.1[c].chars().count());
-                cells.chain([column.title.chars().count()]).max().unwrap_or(0)
-            })
-            .collect();
+        let natural = self.natural();
         let mut shown: Vec<usize> = (0..self.columns.len()).collect();
         loop {
             let mut widths: Vec<usize> = shown.iter().map(|c| natural[*c]).collect();

@@ -2,7 +2,7 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use super::{conditions, findings, notes, rules, steps, sure};
+use super::{conditions, findings, flow, notes, rules, steps, sure};
 use crate::output::words;
 use crate::review::{Call, Review, Verdict};
 use crate::scenario::Scenario;
@@ -11,11 +11,13 @@ use crate::sweep::SweepReport;
 /// Most reasons of the verdict.
 const REASONS: usize = 5;
 
-/// The text of `review`: verdict, reasons, steps, findings, rules, notes.
+/// The text of `review`: verdict, reasons, steps, findings, rules, the delay-free view in short, notes.
 pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     verdict(&mut paper, &review.verdict);
     body(&mut paper, page, scenario, &review.asked, &review.sweep);
+    flow::short(&mut paper, scenario, &review.states.flow);
+    notes::notes(&mut paper, scenario);
     paper.finish()
 }
 
@@ -43,7 +45,7 @@ pub(super) fn verdict(paper: &mut Paper, verdict: &Verdict) {
     }
 }
 
-/// Everything about a sweep below its first sentence.
+/// Everything about a sweep below its first sentence, but for the notes.
 pub(super) fn body(
     paper: &mut Paper,
     page: &Page<'_>,
@@ -67,7 +69,6 @@ pub(super) fn body(
     sure::sure(paper, scenario, report);
     rules::not_judged(paper, scenario, report);
     rules::margins(paper, scenario, report);
-    notes::notes(paper, scenario);
 }
 
 /// What was drawn: `Monte Carlo, 10,000 draws, uniform, seed 1`.

@@ -1,7 +1,7 @@
 //! One run.
 
 use super::Page;
-use super::findings::{about, worst};
+use super::findings::{about, departure, worst};
 use super::paper::{Paper, Table, Tone};
 use super::{notes, rules, steps};
 use crate::engine::{End, Window};
@@ -46,7 +46,7 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
     if !report.facts.is_empty() {
         paper.heading("Found in this run, worst first");
         for fact in report.facts.iter().take(FACTS) {
-            let (tone, words) = told(scenario, asked, fact);
+            let (tone, words) = told(scenario, asked, report, fact);
             paper.item(tone, &words);
         }
         super::more(&mut paper, report.facts.len().saturating_sub(FACTS), "the JSON, with --json");
@@ -93,10 +93,13 @@ fn table(paper: &mut Paper, scenario: &Scenario, windows: &[Window]) {
 }
 
 /// One finding of the run.
-fn told(scenario: &Scenario, asked: &Asked, fact: &Fact) -> (Tone, String) {
+fn told(scenario: &Scenario, asked: &Asked, report: &RunReport, fact: &Fact) -> (Tone, String) {
     let mut text = about(scenario, asked, &fact.subject);
     if let Some(value) = words::worst_of(fact) {
         text += &format!(": {}", worst(fact.subject.kind, value));
+    }
+    if let Some(against) = report.against(fact) {
+        text += &format!(": {}", departure(scenario, against));
     }
     if let Some((from, to)) = fact.place {
         let unit = scenario.unit;

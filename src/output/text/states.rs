@@ -1,9 +1,9 @@
-//! Stable states.
+//! Stable states, and what may follow what.
 
 use super::Page;
-use super::notes;
 use super::paper::{Paper, Table, Tone};
 use super::steps::state;
+use super::{flow, notes};
 use crate::circuit::NetId;
 use crate::logic::{Bits, State};
 use crate::output::words;
@@ -11,11 +11,12 @@ use crate::review::StatesReport;
 use crate::scenario::Scenario;
 
 /// Most rows told of.
-const ROWS: usize = 24;
+const ROWS: usize = 10;
 /// Most names in a list.
 const NAMES: usize = 12;
 
-/// The text of `states`: how many there are, and which, by input vector.
+/// The text of `states`: how many there are, the flow table if it is small (else some states by input vector), and what is
+/// read off it: races, hazards, coverage, the automaton, the reference.
 pub fn states(scenario: &Scenario, report: &StatesReport, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     let (tone, count) = match &report.count {
@@ -38,9 +39,12 @@ pub fn states(scenario: &Scenario, report: &StatesReport, page: &Page<'_>) -> St
     let variables = list(&report.state_variables);
     let fewest = if report.state_variables.is_empty() { String::new() } else { format!(" ({fewest})") };
     paper.say(2, Tone::Plain, &format!("State variables: {variables}{fewest}."));
-    by_inputs(&mut paper, scenario, report);
-    paper.gap();
-    paper.say(0, Tone::Plain, "Transitions between stable states are not analysed yet.");
+    if !flow::table(&mut paper, scenario, report) {
+        by_inputs(&mut paper, scenario, report);
+    }
+    flow::dynamics(&mut paper, scenario, &report.flow);
+    flow::reading(&mut paper, scenario, &report.flow);
+    flow::reference(&mut paper, scenario, &report.flow);
     notes::notes(&mut paper, scenario);
     paper.finish()
 }

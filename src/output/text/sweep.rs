@@ -1,6 +1,7 @@
 //! The sweep alone.
 
 use super::Page;
+use super::notes;
 use super::review::{body, verdict as say_verdict};
 use crate::findings::Asked;
 use crate::review::Verdict;
@@ -12,5 +13,6 @@ pub fn sweep(scenario: &Scenario, asked: &Asked, report: &SweepReport, verdict: 
     let mut paper = page.paper();
     say_verdict(&mut paper, verdict);
     body(&mut paper, page, scenario, asked, report);
+    notes::notes(&mut paper, scenario);
     paper.finish()
 }

@@ -4,7 +4,7 @@ use crate::circuit::NetId;
 use crate::engine::{End, Window};
 use crate::findings::{Asked, Fact, Kind};
 use crate::output::words;
-use crate::review::RunReport;
+use crate::review::{RunReport, departure_words};
 use crate::scenario::{MomentKind, Scenario};
 use crate::sweep::Worst;
 use crate::time::{Span, Time};
@@ -124,7 +124,7 @@ pub(super) fn spots(scenario: &Scenario, asked: &Asked, run: &RunReport) -> Vec<
 
 /// Where a finding lies; what is said of a state at rest lies from its step to the last change before that rest.
 fn place(run: &RunReport, fact: &Fact) -> Option<(Time, Time)> {
-    let at_rest = matches!(fact.subject.kind, Kind::Expect | Kind::Edges | Kind::NeverAtRest);
+    let at_rest = matches!(fact.subject.kind, Kind::Expect | Kind::NotInReference | Kind::Edges | Kind::NeverAtRest);
     let window = run.trace.windows.iter().find(|window| Some(window.moment) == fact.subject.moment);
     let settled = window.filter(|_| at_rest).map(|it| (it.start, it.settle_from + it.settling.unwrap_or_default()));
     fact.place.or(settled)
@@ -138,6 +138,10 @@ fn spot(scenario: &Scenario, asked: &Asked, run: &RunReport, fact: &Fact) -> Opt
         (_, Some(name)) => name.to_string(),
         (Kind::Expect, None) => format!("expected {}", named.pattern.as_deref().unwrap_or_default()),
         (Kind::Edges, None) => format!("expected {} transitions", named.pattern.as_deref().unwrap_or_default()),
+        (Kind::NotInReference, None) => match run.against(fact) {
+            Some(against) => format!("reference: {}", departure_words(scenario, against, false).allowed),
+            None => named.kind.to_string(),
+        },
         (kind, None) => kind.word().to_string(),
     };
     let value = match words::worst_of(fact) {

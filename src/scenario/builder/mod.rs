@@ -259,7 +259,7 @@ impl Builder {
         &mut self.rules
     }
 
-    /// The reference network, to be added to. Checked, not analysed yet.
+    /// The reference network, to be added to.
     pub fn reference(&mut self) -> &mut NewReference {
         self.reference.get_or_insert_default()
     }

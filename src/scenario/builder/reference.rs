@@ -44,7 +44,6 @@ impl NewReference {
 /// Checks the reference, if there is one; `outputs` are the default of the nets to compare.
 pub(super) fn check(context: &mut Context<'_>, told: &Builder, outputs: &[NetId]) -> Option<Reference> {
     let said = told.reference.as_ref()?;
-    context.not_analysed(said.mark, "reference: not analysed yet; states are not compared with it");
     if said.gates.is_empty() {
         let help = "add its gates under `[reference.gates]`, or remove the reference";
         context.faults.add(said.mark, "the reference has no gates", help);

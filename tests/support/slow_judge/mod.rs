@@ -1,6 +1,7 @@
 //! A slow judge without tricks, for comparison: it keeps the whole run as plain lists and answers every question by
 //! looking through them, in the words of the semantics.
 
+mod reference;
 mod runs;
 mod windows;
 
@@ -153,7 +154,8 @@ pub fn judge(scenario: &Scenario, asked: &Asked, log: &Log) -> Said {
             RuleKey::Never => slow.never(number, question),
             RuleKey::Expect => slow.expect(number, question),
             RuleKey::Edges => slow.edges(number, question),
-            RuleKey::NeverAtRest | RuleKey::GlitchFree | RuleKey::SettleWithin | RuleKey::Reference => {}
+            RuleKey::NeverAtRest | RuleKey::GlitchFree | RuleKey::SettleWithin => {}
+            RuleKey::Reference => slow.reference(number, question),
             RuleKey::CriticalRace => slow.critical_race(number, question),
             RuleKey::Oscillation if question.moment.is_none() => slow.oscillation_somewhere(number),
             RuleKey::Oscillation => slow.oscillation(number, question),
