@@ -66,7 +66,7 @@ pub(super) fn body(
     findings::findings(paper, page, scenario, asked, report);
     conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
-    sure::sure(paper, scenario, report);
+    sure::sure(paper, report);
     rules::not_judged(paper, scenario, report);
     rules::margins(paper, scenario, report);
 }

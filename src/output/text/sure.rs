@@ -2,11 +2,10 @@
 
 use super::paper::{Paper, Tone};
 use crate::output::words;
-use crate::scenario::Scenario;
 use crate::sweep::{AtMost, SweepReport, UnseenMass};
 
 /// What was never seen, and what has not been seen yet: a few lines below the count of questions.
-pub(super) fn sure(paper: &mut Paper, scenario: &Scenario, report: &SweepReport) {
+pub(super) fn sure(paper: &mut Paper, report: &SweepReport) {
     if report.samples == 0 {
         return;
     }
@@ -15,14 +14,14 @@ pub(super) fn sure(paper: &mut Paper, scenario: &Scenario, report: &SweepReport)
         let text = format!("Draws of {draw} are not independent draws of parts: no interval, no upper bound is given.");
         paper.say(0, Tone::Plain, &text);
     } else if let Some(at_most) = report.at_most {
-        let text = format!("No rule broken in {}: it happens in at most {}.", of(&at_most), bound(&at_most));
+        let text = format!("No rule broken in {}: in at most {}.", of(&at_most), bound(&at_most));
         paper.say(0, Tone::Plain, &text);
     } else if let Some(weakest) = least_judged(report) {
-        let text = format!("A rule not broken in {}: it is in at most {}.", of(&weakest), bound(&weakest));
+        let text = format!("A rule not broken in {}: in at most {}.", of(&weakest), bound(&weakest));
         paper.say(0, Tone::Plain, &text);
     }
     if let Some(mass) = &report.unseen {
-        unseen(paper, scenario, mass);
+        unseen(paper, mass);
     }
     if report.unseen_untold > 0 {
         let steps = words::many(report.unseen_untold, "step");
@@ -43,21 +42,16 @@ fn of(at_most: &AtMost) -> String {
 
 fn bound(at_most: &AtMost) -> String {
     let what = if at_most.boards { "boards" } else { "draws" };
-    format!("{} of such {what} (upper bound, one-sided 95 %)", words::percent(at_most.share))
+    format!("{} of {what} (upper bound, one-sided 95 %)", words::percent(at_most.share))
 }
 
-fn unseen(paper: &mut Paper, scenario: &Scenario, mass: &UnseenMass) {
-    let step = words::step(scenario, Some(mass.moment)).unwrap_or_default();
+/// One line; the step it speaks of is in the JSON.
+fn unseen(paper: &mut Paper, mass: &UnseenMass) {
     let (estimate, upper) = (words::percent(mass.estimate), words::percent(mass.upper));
-    let figures = format!("in {estimate} of further draws (Good-Turing; at most {upper}, one-sided 95 %)");
+    let figures = format!("orders of loop nets in {estimate} of further draws (at most {upper}, one-sided 95 %).");
     if mass.is_high() {
-        let text = format!("Draw more: loop nets would change in an order not seen yet, at step {step}, {figures}.");
-        paper.say(0, Tone::Unsure, &text);
-    } else if mass.once > 0 {
-        let text = format!("Loop nets would change in an order not seen yet, at step {step}, {figures}.");
-        paper.say(0, Tone::Plain, &text);
+        paper.say(0, Tone::Unsure, &format!("Draw more: new {figures}"));
     } else {
-        let text = format!("No order of loop nets was seen only once: a new one comes {figures}.");
-        paper.say(0, Tone::Plain, &text);
+        paper.say(0, Tone::Plain, &format!("New {figures}"));
     }
 }
