@@ -280,10 +280,7 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
         ))
     };
     file("", "after = 50", "").is(Call::NoFailureFound, &[]);
-    let cases = [
-        file("", "after = 50", "[[groups]]\ngates = [\"out\"]\ntracking = 0.9"),
-        file("", "after = 50", "[sweep]\nvary = \"cycle\""),
-    ];
+    let cases = [file("", "after = 50", "[sweep]\nvary = \"per-event\""), file("", "after = 50", "[parts]\nx = 1")];
     for case in &cases {
         case.is(Call::Undecided, &["not analysed yet"]);
         let text = text::sweep(
@@ -304,7 +301,7 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
     assert_eq!((rule.judged, rule.broken), (samples, samples));
     assert_eq!(never.why_not(RuleKey::Never, "", Reason::NotReached), samples);
     // but what is broken without it is broken
-    let broken = "[[rules.never]]\nstate = { a = 0 }\n[[groups]]\ngates = [\"out\"]\ntracking = 0.9";
+    let broken = "[[rules.never]]\nstate = { a = 0 }\n[parts]\nx = 1";
     file("", "after = 50", broken).is(Call::Broken, &["never"]);
 }
 

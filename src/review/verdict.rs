@@ -2,6 +2,7 @@
 
 use std::collections::BTreeMap;
 
+use super::conditions::{by_condition, together};
 use super::departure::departure_words;
 use super::report::{Call, RunReport, Verdict};
 use crate::circuit::NetId;
@@ -10,8 +11,13 @@ use crate::findings::{Against, Fact, Kind, Question, Reason, RuleKey, Subject};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, SweepReport};
 
-/// The verdict of a sweep.
+/// The verdict of a sweep, of all its conditions together.
 pub fn verdict(scenario: &Scenario, sweep: &SweepReport) -> Verdict {
+    together(by_condition(scenario, sweep)).unwrap_or_else(|| of_one(scenario, sweep))
+}
+
+/// The verdict of a sweep with the delays that it drew, whatever its conditions say.
+pub(super) fn of_one(scenario: &Scenario, sweep: &SweepReport) -> Verdict {
     let broken = broken(scenario, sweep);
     let open = open(scenario, sweep);
     let draws = format!("{} {}", grouped(sweep.samples), draws_word(scenario.plan.draw, sweep.samples));
@@ -64,6 +70,8 @@ fn draws_word(draw: Marginal, n: u64) -> &'static str {
     match (draw, n) {
         (Marginal::Corners, 1) => "draw of corners",
         (Marginal::Corners, _) => "draws of corners",
+        (Marginal::Hypercube, 1) => "draw of a Latin hypercube",
+        (Marginal::Hypercube, _) => "draws of a Latin hypercube",
         (_, 1) => "draw",
         _ => "draws",
     }
@@ -174,6 +182,9 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
     let mut reasons = Vec::new();
     if scenario.stimulus.moments.is_empty() {
         reasons.push("there is no step and no clock, so nothing was asked of the block in motion".to_string());
+    }
+    if sweep.samples == 0 {
+        reasons.push("no draw was run".to_string());
     }
     reasons.extend(scenario.not_analysed.iter().cloned());
     let mut unsettled = Vec::new();
