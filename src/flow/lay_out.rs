@@ -80,9 +80,12 @@ pub fn lay_out(mut scenario: Scenario, control: &Control) -> Result<Scenario, Fl
             0 => String::new(),
             more => format!(" and {more} more"),
         };
-        let why = match steps >= MOST_STEPS {
-            true => "too many steps",
-            false => "no sequence of changes leads there for sure, whatever the delays",
+        let why = if steps >= MOST_STEPS {
+            "too many steps"
+        } else if table.states_truncated {
+            "a limit cut the flow table, or no sequence of changes leads there for sure"
+        } else {
+            "no sequence of changes leads there for sure, whatever the delays"
         };
         let sentence = format!("stimulus: not every single change is walked ({why}): {}{more}", named.join("; "));
         scenario.not_analysed.push(sentence);
