@@ -67,9 +67,10 @@ pub fn lay_out(mut scenario: Scenario, control: &Control) -> Result<Scenario, Fl
 
     let made = wanted - tour.left_out.len();
     let steps = tour.steps.len();
-    scenario.notes.push(format!(
-        "stimulus: {steps} steps make {made} of {wanted} single-input changes from reachable stable states"
-    ));
+    let make = if steps == 1 { "step makes" } else { "steps make" };
+    scenario
+        .notes
+        .push(format!("stimulus: {steps} {make} {made} of {wanted} single-input changes from reachable stable states"));
     if !tour.left_out.is_empty() {
         let said = |(state, input): &(StateNumber, NetId)| {
             let values = &table.states[*state as usize].values;

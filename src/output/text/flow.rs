@@ -240,9 +240,9 @@ fn hazards(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
         paper.item(Tone::Unsure, "A limit cut the search for hazards: there may be more, or cures that are not told.");
     }
     if flow.hazards_not_judged > 0 {
-        let times = words::many(flow.hazards_not_judged, "time");
+        let cases = words::many(flow.hazards_not_judged, "case");
         let text = format!(
-            "Not judged for hazards: {times} a net and a change of a state; too many inputs move at once, or too many \
+            "Not judged for hazards: {cases} of a net and a change from a state; too many inputs move at once, or too many \
              changes are possible."
         );
         paper.item(Tone::Unsure, &text);
