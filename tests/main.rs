@@ -10,6 +10,7 @@ mod engine_agrees;
 mod engine_properties;
 mod essential;
 mod golden;
+mod hands_and_partners;
 mod judges_agree;
 mod malformed;
 mod outcomes_agree;

@@ -13,11 +13,13 @@
 //! | sample | for each step: 1 + number of inputs it sets | place; skew of each input it sets |
 //! | sample | then for each clock: 1 + 2·count | first edge; jitter of each edge |
 //! | sample | then for each gate: 1 | start bit (the top bit) |
+//! | sample | 2^40, then for each input of a step that bounces: 2 + 2·(most pairs) | number of pairs; span; place of each toggle but the last |
 
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
 use super::Instance;
+use super::bounces::Bounces;
 use crate::delay::{DelayRange, Marginal};
 use crate::logic::Bits;
 use crate::scenario::{Begin, Place, Scenario};
@@ -34,6 +36,7 @@ pub struct Sampler {
     tries: u64,
     board_plan: Vec<Quantity>,
     sample_plan: Vec<Quantity>,
+    bounces: Bounces,
     start_place: u64,
     gates: usize,
     random_start: bool,
@@ -144,6 +147,7 @@ impl Sampler {
             tries: scenario.plan.tries,
             board_plan,
             sample_plan,
+            bounces: Bounces::new(stimulus),
             start_place: place,
             gates: gates as usize,
             random_start: scenario.begin == Begin::Random,
@@ -170,6 +174,7 @@ impl Sampler {
         let plan = std::mem::take(&mut self.sample_plan);
         self.draw_plan(2 * sample + 1, &plan, into);
         self.sample_plan = plan;
+        self.bounces.draw(&mut self.rng, 2 * sample + 1, self.draw, &mut into.bounces);
         if self.random_start {
             self.fill_start(sample, &mut into.start);
         }

@@ -140,7 +140,6 @@ impl Case {
             plan: Plan::default(),
             notes: Vec::new(),
             not_analysed: Vec::new(),
-            cannot_run: false,
         }
     }
 }

@@ -4,8 +4,10 @@
 
 mod eichelberger;
 mod engine;
+mod filters;
 mod flow_tables;
 mod hazards;
+mod hundreds_of_gates;
 mod large_networks;
 mod networks;
 mod random_networks;

@@ -198,7 +198,6 @@ impl World {
             plan: self.plan,
             notes: Vec::new(),
             not_analysed: Vec::new(),
-            cannot_run: false,
         }
     }
 

@@ -250,6 +250,11 @@ fn hazards(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     if groups.is_empty() && !flow.hazards_truncated && flow.hazards_not_judged == 0 {
         paper.item(Tone::Plain, "No static or dynamic hazard of watched nets or feedback nets.");
     }
+    if !scenario.circuit.feedback().is_empty() {
+        let text = "Hazards are those of the logic while the feedback nets are as they were; what nets do when these then \
+                    change is for the sweep to see.";
+        paper.say(2, Tone::Plain, text);
+    }
 }
 
 /// `Static-1 hazard (logic) of level: step to the lower gauge (from S1 choose_upper 1→0), and 1 more change; cure: …`.

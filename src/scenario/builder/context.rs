@@ -23,7 +23,6 @@ pub(super) struct Context<'a> {
     pub faults: Faults,
     pub notes: Vec<Said<String>>,
     pub not_analysed: Vec<Said<String>>,
-    pub cannot_run: bool,
     comparisons: Comparisons,
 }
 
@@ -37,15 +36,7 @@ pub(super) enum Least {
 
 impl<'a> Context<'a> {
     pub fn new(nets: Nets<'a>, unit: Unit, faults: Faults) -> Context<'a> {
-        Context {
-            nets,
-            unit,
-            faults,
-            notes: Vec::new(),
-            not_analysed: Vec::new(),
-            cannot_run: false,
-            comparisons: Comparisons::default(),
-        }
+        Context { nets, unit, faults, notes: Vec::new(), not_analysed: Vec::new(), comparisons: Comparisons::default() }
     }
 
     pub fn note(&mut self, mark: Mark, note: impl Into<String>) {

@@ -356,7 +356,6 @@ impl Builder {
             plan,
             notes: in_order(context.notes),
             not_analysed: in_order(context.not_analysed),
-            cannot_run: context.cannot_run,
         })
     }
 
