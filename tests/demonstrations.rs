@@ -26,6 +26,9 @@ fn every_demonstration_shows_what_it_says() {
         ("power-up", Call::NoFailureFound, Some(Kind::CriticalRace)),
         ("contactors", Call::Broken, Some(Kind::Never)),
         ("clock-switch", Call::Broken, Some(Kind::MinPulse)),
+        ("pulse-train", Call::NoFailureFound, Some(Kind::Swallowed)),
+        ("push-button", Call::Broken, Some(Kind::Edges)),
+        ("handshake-partner", Call::NoFailureFound, None),
         ("clock-switch-safe", Call::NoFailureFound, Some(Kind::Swallowed)),
     ];
     let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("scenarios");

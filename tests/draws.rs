@@ -3,11 +3,11 @@
 
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
-use stillgate::circuit::Function;
+use stillgate::circuit::{Function, NetId};
 use stillgate::delay::{DelayRange, Marginal};
 use stillgate::instance::{ClockCase, Instance, Which};
 use stillgate::logic::Bits;
-use stillgate::scenario::{Begin, Clock, Mark, Place};
+use stillgate::scenario::{Begin, Bounce, Clock, Mark, Place};
 use stillgate::time::Span;
 
 use crate::support::spread::kolmogorov;
@@ -37,6 +37,8 @@ fn drawn() -> World {
     world.steps[0].skew = Some(range(0, 700));
     world.step(Place::After(range(60_000, 90_000)), &[("a", false)]);
     world.step(Place::Rest(fs(77)), &[("b", false)]);
+    world.steps[0].bounce = Some(Bounce { lasting: range(100, 9_000), pulses: (0, 3) });
+    world.steps[2].bounce = Some(Bounce { lasting: range(1, 1 << 40), pulses: (2, 2) });
     let net = world.net("clk");
     let clock = Clock {
         net,
@@ -88,7 +90,28 @@ fn draws_follow_the_written_layout() {
             expected.delays.wire.push(range(ranges, 2 * gates + 2 * w as u64));
         }
         let mut place = 0;
+        let mut bounces = 1 << 40;
         for step in &scenario.stimulus.steps {
+            expected.bounces.push(match &step.bounce {
+                None => Vec::new(),
+                Some(bounce) => {
+                    let (least, most) = bounce.pulses;
+                    let input = |_: &(NetId, bool)| {
+                        let pairs = uniform(DelayRange::between(fs(least.into()), fs(most.into())), own(bounces)).fs();
+                        let last = uniform(bounce.lasting, own(bounces + 1));
+                        let toggle = |j: u64| {
+                            let u = u128::from(own(bounces + 2 + j));
+                            fs(((u * u128::from(last.fs())) >> 64) as u64)
+                        };
+                        let mut toggles: Vec<Span> = (0..(2 * pairs).saturating_sub(1)).map(toggle).collect();
+                        toggles.sort();
+                        toggles.extend((pairs > 0).then_some(last));
+                        bounces += 2 + 2 * u64::from(most);
+                        toggles
+                    };
+                    step.set.iter().map(input).collect()
+                }
+            });
             expected.places.push(match step.place {
                 Place::At(range) | Place::After(range) => uniform(range, own(place)),
                 Place::Rest(wait) => wait,

@@ -1,13 +1,13 @@
 //! Every machine tells the same story as the slow engine, on thousands of random small circuits in which ties are the
 //! rule.
 
-use stillgate::circuit::{Circuit, Compiled, Function, NetId};
+use stillgate::circuit::{Compiled, Function, NetId};
 use stillgate::control::Control;
 use stillgate::delay::Filter;
 use stillgate::engine::{End, Hit, Program};
 use stillgate::instance::Instance;
 use stillgate::logic::{Bits, Value};
-use stillgate::scenario::{Begin, Place, Scenario};
+use stillgate::scenario::{Begin, MomentKind, Place, Scenario};
 
 use crate::support::random_worlds::{Case, Filters, Kind, Lengths, PLAIN, Start, cases};
 use crate::support::recorder::{Record, Recorder};
@@ -26,13 +26,26 @@ struct Met {
     time: usize,
     swallowed: usize,
     unknown_left: usize,
+    bounced: usize,
+    /// Steps that waited for a pattern which came.
+    came: usize,
+    never_came: usize,
     /// Gates of more than six nets: counting, parity, table.
     wide: [usize; 3],
 }
 
 impl Met {
-    fn count(&mut self, circuit: &Circuit, record: &Record) {
+    fn count(&mut self, scenario: &Scenario, instance: &Instance, record: &Record) {
+        let circuit = &scenario.circuit;
         self.cases += 1;
+        for moment in record.windows.iter().flat_map(|window| &window.opening.moments) {
+            if let MomentKind::Step(step) = scenario.stimulus.moments[*moment as usize].kind {
+                let place = &scenario.stimulus.steps[step as usize].place;
+                self.came += usize::from(matches!(place, Place::When { .. }));
+                self.bounced += usize::from(instance.bounces[step as usize].iter().any(|toggles| !toggles.is_empty()));
+            }
+        }
+        self.never_came += usize::from(record.never_came.is_some());
         for gate in circuit.gates() {
             match circuit.compiled(gate) {
                 Compiled::Table(_) => {}
@@ -88,14 +101,14 @@ pub fn print(scenario: &Scenario, rest: &Bits, instance: &Instance) -> String {
     }
     for (s, step) in scenario.stimulus.steps.iter().enumerate() {
         let set: Vec<String> = step.set.iter().map(|(net, bit)| format!("{}={}", name(net), u8::from(*bit))).collect();
-        let word = match step.place {
-            Place::At(_) => "at",
-            Place::After(_) => "after",
-            Place::Rest(_) => "rest",
-            Place::When { .. } => "when",
+        let word = match &step.place {
+            Place::At(_) => "at".to_string(),
+            Place::After(_) => "after".to_string(),
+            Place::Rest(_) => "rest".to_string(),
+            Place::When { pattern, timeout, .. } => format!("when {pattern:?} timeout {timeout:?}"),
         };
-        text +=
-            &format!("\nstep {} {word} {} sets {set:?} skew {:?}", s + 1, instance.places[s].fs(), instance.skews[s]);
+        let (wait, skew, bounce) = (instance.places[s].fs(), &instance.skews[s], &instance.bounces[s]);
+        text += &format!("\nstep {} {word} {wait} sets {set:?} skew {skew:?} bounce {bounce:?}", s + 1);
     }
     for (clock, case) in scenario.stimulus.clocks.iter().zip(&instance.clocks) {
         text += &format!("\nclock {} {case:?}", name(&clock.net));
@@ -152,7 +165,7 @@ fn compare(scenario: &Scenario, rest: &Bits, instance: &Instance, of: &str) -> R
 fn agree(count: u64, kind: Kind) -> Met {
     let mut met = Met::default();
     for Case { name, scenario, rest, instance, .. } in cases(count, kind) {
-        met.count(&scenario.circuit, &compare(&scenario, &rest, &instance, &name));
+        met.count(&scenario, &instance, &compare(&scenario, &rest, &instance, &name));
     }
     met
 }
@@ -174,6 +187,18 @@ fn transport_and_mixtures_from_rest() {
 }
 
 #[test]
+fn reject_and_involution_from_rest() {
+    let met = agree(1500, Kind { filters: Filters::Reject, delays: Lengths::Short, ..PLAIN });
+    assert!(met.cases > 100 && met.settled > 200 && met.exact > 20 && met.swallowed > 100, "{met:?}");
+    let met = agree(1500, Kind { filters: Filters::Involution, delays: Lengths::Short, ..PLAIN });
+    assert!(met.cases > 100 && met.settled > 200 && met.exact > 20 && met.swallowed > 100, "{met:?}");
+    let met = agree(900, Kind { filters: Filters::Involution, delays: Lengths::Wide, hazards: true, ..PLAIN });
+    assert!(met.cases > 100 && met.settled > 200 && met.swallowed > 100, "{met:?}");
+    let met = agree(1500, Kind { filters: Filters::All, wires: 0.3, ..PLAIN });
+    assert!(met.cases > 200 && met.settled > 200 && met.cut > 100 && met.exact > 20 && met.swallowed > 50, "{met:?}");
+}
+
+#[test]
 fn random_starts() {
     let kind = Kind { begin: Start::Random, gates: (2, 12), ..PLAIN };
     let met = agree(1800, Kind { clocks: true, ..kind });
@@ -181,6 +206,19 @@ fn random_starts() {
     assert!(met.wide.iter().all(|gates| *gates > 20), "{met:?}");
     let met = agree(1800, Kind { filters: Filters::Mixed, wires: 0.3, delays: Lengths::Short, clocks: true, ..kind });
     assert!(met.settled > 300 && met.cut > 300 && met.exact > 20 && met.transitions > 50, "{met:?}");
+}
+
+#[test]
+fn hands_and_partners() {
+    let kind = Kind { hands: 0.35, steps: (3, 10), ..PLAIN };
+    let met = agree(1500, kind);
+    assert!(met.bounced > 100 && met.came > 100 && met.never_came > 50 && met.cut > 100, "{met:?}");
+    let met = agree(900, Kind { filters: Filters::All, wires: 0.2, delays: Lengths::Short, ..kind });
+    assert!(met.bounced > 100 && met.came > 50 && met.never_came > 50, "{met:?}");
+    let met = agree(900, Kind { begin: Start::Random, clocks: true, rings: true, ..kind });
+    assert!(met.bounced > 100 && met.came > 100 && met.never_came > 10 && met.exact > 20, "{met:?}");
+    let met = agree(600, Kind { begin: Start::Unknown, delays: Lengths::Wide, ..kind });
+    assert!(met.bounced > 50 && met.came > 50 && met.never_came > 50, "{met:?}");
 }
 
 #[test]
@@ -202,6 +240,8 @@ fn rings_that_recur_and_rings_that_nearly_do() {
     assert!(met.exact > 50, "{met:?}");
     let met = agree(180, Kind { delays: Lengths::Wide, ..kind });
     assert!(met.inexact > 10, "{met:?}");
+    let met = agree(450, Kind { filters: Filters::All, wires: 0.2, delays: Lengths::Short, clocks: true, ..kind });
+    assert!(met.exact > 50 && met.cut > 100, "{met:?}");
 }
 
 /// Enough gates for the other queue, and for a heap that is more than one level deep.

@@ -222,6 +222,15 @@ fn wires_filters_and_clocks() {
 }
 
 #[test]
+fn hands_and_partners() {
+    let kind = Worlds { hands: 0.35, steps: (3, 8), ..PLAIN };
+    let met = agree(2500, kind);
+    assert!(met.broken["when"] > 300 && met.judged["when"] > 1000 && met.not_judged["not reached"] > 1000, "{met:#?}");
+    let met = agree(1000, Worlds { filters: Filters::All, delays: Lengths::Short, clocks: true, ..kind });
+    assert!(met.broken["when"] > 50 && met.judged["when"] > 200, "{met:#?}");
+}
+
+#[test]
 fn random_starts() {
     let met = agree(4000, Worlds { begin: Start::Random, clocks: true, ..PLAIN });
     for rule in RULES {

@@ -14,6 +14,7 @@ mod essential;
 mod golden;
 mod groups;
 mod hypercube;
+mod hands_and_partners;
 mod judges_agree;
 mod malformed;
 mod outcomes_agree;

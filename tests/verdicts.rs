@@ -281,10 +281,6 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
     };
     file("", "after = 50", "").is(Call::NoFailureFound, &[]);
     let cases = [
-        file("", "when = { out = 1 }\nwait = 5", ""),
-        file("", "after = 50\nbounce = { lasting = [1, 5], pulses = [0, 6] }", ""),
-        file(", filter = { reject = 2 }", "after = 50", ""),
-        file(", filter = { involution = { tau = 1 } }", "after = 50", ""),
         file("", "after = 50", "[sweep]\nvary = \"per-event\""),
     ];
     for case in &cases {
@@ -298,6 +294,14 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
         );
         assert!(text.contains("not analysed yet"), "{text}");
     }
+    // steps that wait for a partner and contacts that bounce are analysed
+    let analysed = "when = { out = 1 }\nwait = 5\nbounce = { lasting = [1, 5], pulses = [0, 6] }";
+    file("", analysed, "").is(Call::NoFailureFound, &[]);
+    let never = file("", "when = { a = 0 }\nwait = 5", "");
+    never.is(Call::Broken, &["never-came a=0 after \"second\""]);
+    let (rule, samples) = (never.rule(RuleKey::When, "second"), never.review.sweep.samples);
+    assert_eq!((rule.judged, rule.broken), (samples, samples));
+    assert_eq!(never.why_not(RuleKey::Never, "", Reason::NotReached), samples);
     // but what is broken without it is broken
     let broken = "[[rules.never]]\nstate = { a = 0 }\n[parts]\nx = 1";
     file("", "after = 50", broken).is(Call::Broken, &["never"]);

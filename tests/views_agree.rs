@@ -7,7 +7,7 @@ use stillgate::review::{self, ReviewError};
 use crate::support::random_worlds::{Filters, Kind, Lengths, PLAIN, Start, cases};
 
 /// Kinds of circuits for which the multiple-winner method is valid, then kinds with a ternary bound only.
-fn kinds() -> [Kind; 8] {
+fn kinds() -> [Kind; 12] {
     let short = Kind { delays: Lengths::Short, ..PLAIN };
     let hazards = Kind { hazards: true, gates: (0, 4), ..short };
     [
@@ -19,6 +19,10 @@ fn kinds() -> [Kind; 8] {
         Kind { wires: 0.4, ..hazards },
         Kind { filters: Filters::Mixed, ..hazards },
         Kind { wires: 0.3, filters: Filters::Transport, rings: true, ..PLAIN },
+        Kind { filters: Filters::Reject, ..hazards },
+        Kind { filters: Filters::Involution, ..hazards },
+        Kind { wires: 0.2, filters: Filters::All, ..short },
+        Kind { hands: 0.3, ..short },
     ]
 }
 

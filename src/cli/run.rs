@@ -23,9 +23,6 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     }
     let which = which(&arguments.delays, &scenario)?;
     let nets = nets(&arguments.nets, &scenario)?;
-    if scenario.cannot_run {
-        return Err(Failure::Bad(format!("this circuit cannot be run yet: {}", scenario.not_analysed.join("; "))));
-    }
     let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(true, "run");
     let program = program(&scenario, &control)?;

@@ -1,12 +1,14 @@
 //! Delay ranges, what a gate does with short pulses, and the maps from a random number to a delay.
 //! No random generator lives here.
 
+mod involution;
 mod quantile;
 mod scaled;
 mod together;
 
 use serde::{Deserialize, Serialize};
 
+pub use involution::{involution, recovered};
 pub use quantile::Marginal;
 pub use together::{Billionths, Group, Together};
 
@@ -51,7 +53,7 @@ pub enum Filter {
     Transport,
     /// Pulses not longer than this are swallowed.
     Reject(Span),
-    /// Short pulses shrink from stage to stage; the time constant.
+    /// Short pulses shrink from stage to stage; the time constant. See [`involution`].
     Involution(Span),
 }
 

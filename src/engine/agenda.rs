@@ -1,7 +1,8 @@
-//! What comes from outside: steps, skewed input changes, clock edges.
+//! What comes from outside: steps, skewed input changes, bounces, patterns that steps wait for, clock edges.
 
 use crate::circuit::NetId;
 use crate::instance::Instance;
+use crate::logic::{State, Value};
 use crate::scenario::{Place, Stimulus};
 use crate::time::{Span, Time};
 
@@ -11,6 +12,10 @@ pub(super) struct Agenda {
     step: usize,
     /// Placed instant of the step before.
     last_step: Time,
+    /// When the pattern that the next step waits for was true, once it was.
+    came: Option<Time>,
+    /// Does the next step wait for a pattern that has not come?
+    waiting: bool,
     /// Input changes still to come, latest first.
     later: Vec<(Time, NetId, bool)>,
     /// For each clock its next edge, and when.
@@ -24,6 +29,8 @@ pub(super) struct Due {
     pub moments: Vec<u32>,
     /// Input changes of this instant, in the order in which they are made.
     pub set: Vec<(NetId, bool)>,
+    /// Inputs that bounce, and so move whatever they lead to.
+    pub bouncing: Vec<NetId>,
     /// All values that the steps of this instant lead to, skewed ones included.
     pub becomes: Vec<(NetId, bool)>,
     /// The last input change of the steps of this instant.
@@ -34,6 +41,7 @@ impl Agenda {
     pub(super) fn reset(&mut self, stimulus: &Stimulus, instance: &Instance) {
         self.step = 0;
         self.last_step = Time::ZERO;
+        self.wait_for_pattern(stimulus);
         self.later.clear();
         self.clocks.clear();
         for (clock, case) in stimulus.clocks.iter().zip(&instance.clocks) {
@@ -45,23 +53,53 @@ impl Agenda {
     /// When the next step comes, if that is known; `rest_since` is the last instant, given only at rest.
     fn next_step(&self, stimulus: &Stimulus, instance: &Instance, rest_since: Option<Time>) -> Option<Time> {
         let step = stimulus.steps.get(self.step)?;
-        if step.bounce.is_some() {
-            return None;
-        }
         let wait = instance.places[self.step];
         match step.place {
             Place::At(_) => Some(Time::ZERO + wait),
             Place::After(_) => Some(self.last_step + wait),
             Place::Rest(_) => rest_since.map(|since| since + wait),
-            Place::When { .. } => None,
+            Place::When { .. } => self.came.map(|came| came + wait),
         }
     }
 
-    /// The next listed step, if it is one that cannot be placed yet.
-    pub(super) fn cannot_place(&self, stimulus: &Stimulus) -> Option<u32> {
-        let step = stimulus.steps.get(self.step)?;
-        let unknown = step.bounce.is_some() || matches!(step.place, Place::When { .. });
-        unknown.then(|| stimulus.moment_of_step(self.step as u32))
+    /// The next step begins to wait, if it is one that waits for a pattern.
+    fn wait_for_pattern(&mut self, stimulus: &Stimulus) {
+        self.came = None;
+        self.waiting = stimulus.steps.get(self.step).is_some_and(|step| matches!(step.place, Place::When { .. }));
+    }
+
+    /// Does the next step wait for a pattern that has not come?
+    #[inline]
+    pub(super) fn is_waiting(&self) -> bool {
+        self.waiting
+    }
+
+    /// The moment of the step that waits for a pattern.
+    pub(super) fn waiting_for(&self, stimulus: &Stimulus) -> Option<u32> {
+        self.waiting.then(|| stimulus.moment_of_step(self.step as u32))
+    }
+
+    /// When the step that waits for a pattern gives up.
+    pub(super) fn deadline(&self, stimulus: &Stimulus) -> Option<Time> {
+        match stimulus.steps.get(self.step).filter(|_| self.waiting)?.place {
+            Place::When { timeout, .. } => timeout.map(|timeout| self.last_step + timeout),
+            _ => None,
+        }
+    }
+
+    /// Looks for the pattern that the next step waits for in the state after the batch at `now`. Returns whether it has
+    /// come. It is looked for once all inputs of the step before have changed; an X is no match.
+    pub(super) fn look(&mut self, stimulus: &Stimulus, now: Time, state: &State) -> bool {
+        let Some(Place::When { pattern, .. }) = stimulus.steps.get(self.step).map(|step| &step.place) else {
+            return false;
+        };
+        let matches = |(net, bit): &(NetId, bool)| state.get(net.index()) == Value::from(*bit);
+        if self.is_moving() || !pattern.iter().all(matches) {
+            return false;
+        }
+        self.came = Some(now);
+        self.waiting = false;
+        true
     }
 
     /// The next outside event. `quiet_since`: the last instant, given only if no event is pending in the circuit.
@@ -94,6 +132,7 @@ impl Agenda {
         due.moments.clear();
         due.set.clear();
         due.becomes.clear();
+        due.bouncing.clear();
         due.settle_from = at;
         let clocks_over = self.clocks.iter().all(|(edge, _)| *edge == OVER);
         let mut rest_since = quiet_since.filter(|_| clocks_over && self.later.is_empty());
@@ -113,19 +152,35 @@ impl Agenda {
                 let delay = skews.get(i).map_or(Span::ZERO, |skew| *skew - earliest);
                 due.becomes.push((net, value));
                 let before = due.set.iter().rfind(|set| set.0 == net).map_or_else(|| present(net), |set| set.1);
-                if before == value {
-                    // nothing changes: nothing is to come, and settling does not wait for it
-                } else if delay == Span::ZERO {
-                    due.set.push((net, value));
-                } else {
-                    due.settle_from = due.settle_from.max(at + delay);
-                    self.later.push((at + delay, net, value));
+                let toggles = instance.bounces.get(self.step).and_then(|of_step| of_step.get(i));
+                // nothing to come where an input is set to what it has: settling does not wait for it
+                let (mut held, mut next) = (before, value);
+                let mut moves = std::iter::once(&Span::ZERO).chain(toggles.into_iter().flatten()).peekable();
+                while let Some(since) = moves.next() {
+                    let new = next;
+                    next = !next;
+                    // of moves at one instant only what is left in the end is one
+                    if moves.peek() == Some(&since) || new == held {
+                        continue;
+                    }
+                    held = new;
+                    if toggles.is_some() && !due.bouncing.contains(&net) {
+                        due.bouncing.push(net);
+                    }
+                    let when = at + delay + *since;
+                    if when == at {
+                        due.set.push((net, new));
+                    } else {
+                        due.settle_from = due.settle_from.max(when);
+                        self.later.push((when, net, new));
+                    }
                 }
             }
             if self.later.len() > 1 {
                 self.later.sort_by(|a, b| b.cmp(a));
             }
             self.step += 1;
+            self.wait_for_pattern(stimulus);
         }
         if self.clocks.is_empty() {
             return;

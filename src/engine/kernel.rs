@@ -10,11 +10,12 @@ use std::marker::PhantomData;
 
 use super::agenda::{Agenda, Due};
 use super::observer::{Closing, End, Finish, Hit, Observer, Opening};
-use super::plan::{Kind, Plan};
+use super::plan::{Kind, Plan, Rule};
 use super::queue::Queue;
 use super::recurrence::{Recurred, Recurrence, Rest};
 use crate::circuit::{GateId, NetId, WireId};
 use crate::control::Control;
+use crate::delay::{involution, recovered};
 use crate::instance::Instance;
 use crate::logic::{State, Value};
 use crate::time::{Span, Time};
@@ -31,7 +32,7 @@ pub trait Pending {
 #[derive(Clone, Copy, Debug)]
 pub struct One;
 
-/// Transport gates or wires: a list a node.
+/// Gates with other filters, or wires: a list a node.
 #[derive(Clone, Copy, Debug)]
 pub struct Many;
 
@@ -58,8 +59,15 @@ struct Node<L: Level, T> {
     tag: T,
 }
 
-/// A pending event in a node's list: when, which value, what caused it.
-type Event<L, T> = (u64, L, T);
+/// A pending event in a node's list.
+#[derive(Clone, Copy, Debug)]
+struct Event<L, T> {
+    due: u64,
+    /// When it was scheduled.
+    since: u64,
+    value: L,
+    tag: T,
+}
 
 /// The event loop for one choice of values, queue and pending events.
 pub struct Kernel<L: Level, Q, P, T> {
@@ -69,6 +77,8 @@ pub struct Kernel<L: Level, Q, P, T> {
     state: State,
     queue: Q,
     later: Vec<VecDeque<Event<L, T>>>,
+    /// For each gate the previous change of its output as computed, also if it vanished; empty without involution.
+    previous: Vec<Option<i128>>,
     recurrence: Recurrence,
     agenda: Agenda,
     due: Due,
@@ -116,6 +126,7 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             state: State::zeros(plan.circuit.net_count()),
             queue: Q::new(nodes),
             later: if P::MANY { vec![VecDeque::new(); nodes] } else { Vec::new() },
+            previous: if plan.has_involution() { vec![None; plan.gates as usize] } else { Vec::new() },
             recurrence: Recurrence::new(&plan.circuit),
             agenda: Agenda::default(),
             due: Due::default(),
@@ -162,6 +173,7 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         for list in &mut self.later {
             list.clear();
         }
+        self.previous.fill(None);
         match &plan.start {
             Some(start) => {
                 self.nodes.copy_from_slice(&self.template);
@@ -222,6 +234,9 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             observer.batch(Time::ZERO);
         }
 
+        if self.agenda.is_waiting() {
+            self.agenda.look(&plan.stimulus, Time::ZERO, &self.state);
+        }
         let mut timed = self.agenda.next(&plan.stimulus, instance, None);
         let mut batches = 0u64;
         let end = loop {
@@ -237,12 +252,17 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
                 (timed, _) => timed,
             };
             let outside = outside.map(|at| at.fs().max(self.now));
-            let at = match (top, outside) {
-                (None, None) => break End::Settled,
-                (Some((at, _)), None) => at,
-                (None, Some(at)) => at,
-                (Some((at, _)), Some(other)) => at.min(other),
+            let next = match (top, outside) {
+                (Some((at, _)), Some(other)) => Some(at.min(other)),
+                (top, outside) => top.map(|top| top.0).or(outside),
             };
+            if self.agenda.is_waiting()
+                && let Some(deadline) = self.deadline(plan, open, next)
+            {
+                self.now = deadline;
+                break self.interrupted();
+            }
+            let Some(at) = next else { break End::Settled };
             if let (Some(limit), Some(window)) = (plan.limits.time, open)
                 && (top.is_some() || self.agenda.is_moving())
                 && at > (window.start + limit).fs()
@@ -265,10 +285,18 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             } else {
                 self.inside(plan, at, observer);
             }
+            if self.agenda.is_waiting() && self.agenda.look(&plan.stimulus, Time::from_fs(at), &self.state) {
+                timed = self.agenda.next(&plan.stimulus, instance, None);
+            }
             if self.recurrence.is_touched() {
                 self.look_for_recurrence(plan);
             }
-            if self.recurrence.any() && !self.queue_is_empty() && timed.is_none() && self.all_recurred() {
+            if self.recurrence.any()
+                && !self.queue_is_empty()
+                && timed.is_none()
+                && self.agenda.deadline(&plan.stimulus).is_none()
+                && self.all_recurred()
+            {
                 break self.oscillating();
             }
             if self.transitions >= plan.limits.transitions && (!self.queue_is_empty() || self.agenda.is_moving()) {
@@ -279,15 +307,36 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             self.find_owners(plan, end == End::Settled);
             self.close(window, Time::from_fs(self.now), end, observer);
         }
-        let stopped_before = self.agenda.cannot_place(&plan.stimulus).filter(|_| matches!(end, End::Settled));
+        let never_came = self.agenda.waiting_for(&plan.stimulus).filter(|_| !matches!(end, End::Unsettled(_)));
         observer.finish(&Finish {
             at: Time::from_fs(self.now),
             end,
             state: &self.state,
             events: self.events,
-            stopped_before,
+            never_came,
         });
         true
+    }
+
+    /// When the next step stops waiting for its pattern, if that is before everything else: the next batch and the time
+    /// limit of the window. What happens at that very instant may still bring it.
+    #[cold]
+    fn deadline(&self, plan: &Plan, open: Option<Open>, next: Option<u64>) -> Option<u64> {
+        let deadline = self.agenda.deadline(&plan.stimulus)?.fs();
+        let busy = !self.queue_is_empty() || self.agenda.is_moving();
+        let limit = plan.limits.time.zip(open).filter(|_| busy).map(|(limit, window)| (window.start + limit).fs());
+        let first = |other: Option<u64>, last: bool| other.is_none_or(|at| deadline < at || last && deadline == at);
+        (deadline < Time::END.fs() && first(next, false) && first(limit, true)).then_some(deadline)
+    }
+
+    /// How a window ends that something from outside ends.
+    fn interrupted(&self) -> End {
+        let moving = self.agenda.is_moving();
+        match self.queue_is_empty() && !moving {
+            true => End::Settled,
+            false if !moving && self.recurrence.any() && self.all_recurred() => self.oscillating(),
+            false => End::Cut,
+        }
     }
 
     fn queue_is_empty(&self) -> bool {
@@ -354,9 +403,9 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             let list = &mut self.later[index as usize];
             let event = list.pop_front();
             if let Some(next) = list.front() {
-                self.queue.insert(index, next.0);
+                self.queue.insert(index, next.due);
             }
-            event.map_or((old, T::default()), |event| (event.1, event.2))
+            event.map_or((old, T::default()), |event| (event.value, event.tag))
         } else {
             (node.next, node.tag)
         };
@@ -364,7 +413,7 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         self.events += 1;
         let time = Time::from_fs(at);
         self.last = Some(time);
-        if P::MANY && node.kind == Kind::Wire {
+        if P::MANY && node.kind.rule == Rule::Wire {
             let wire = WireId(index - plan.gates);
             if self.recurrence.watches(index) {
                 self.recurrence.moved(index, new.value());
@@ -407,9 +456,9 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
     #[inline]
     fn evaluate<O: Observer<Tag = T>>(&mut self, plan: &Plan, gate: u32, at: u64, tag: T, observer: &mut O) {
         let node = &mut self.nodes[gate as usize];
-        let value = match node.kind {
-            Kind::Table | Kind::TransportTable => L::look_up(node.table, node.sum),
-            _ => L::evaluate(plan.circuit.compiled(GateId(gate)), node.sum),
+        let value = match node.kind.table {
+            true => L::look_up(node.table, node.sum),
+            false => L::evaluate(plan.circuit.compiled(GateId(gate)), node.sum),
         };
         if value == node.next {
             return;
@@ -434,25 +483,50 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         }
     }
 
-    /// Puts a value behind a transport gate's or a wire's pending events; later or equal ones are removed.
+    /// Puts a value behind a node's pending events, by the rule of its kind.
     fn schedule<O: Observer<Tag = T>>(&mut self, plan: &Plan, index: u32, value: L, at: u64, tag: T, observer: &mut O) {
         let node = &mut self.nodes[index as usize];
         let list = &mut self.later[index as usize];
-        let time = at + value.delay(&node.delay);
-        let before = list.front().map(|event| event.0);
-        while list.back().is_some_and(|event| event.0 >= time) {
-            let Some(gone) = list.pop_back() else { break };
-            let delay = gone.1.delay(&node.delay);
-            let age = at + delay - gone.0;
-            if index < plan.gates && 0 < age {
-                observer.swallow(Time::from_fs(at), GateId(index), Span::from_fs(age), Span::from_fs(delay));
+        let before = list.front().map(|event| event.due);
+        let mut swallow = |gone: Option<Event<L, T>>| {
+            if let Some(gone) = gone.filter(|gone| index < plan.gates && gone.since < at) {
+                let (age, delay) = (Span::from_fs(at - gone.since), Span::from_fs(gone.due - gone.since));
+                observer.swallow(Time::from_fs(at), GateId(index), age, delay);
             }
-        }
-        if list.back().map_or(node.out, |event| event.1) != value {
-            list.push_back((time, value, tag));
+        };
+        let due = match node.kind.rule {
+            Rule::Involution => {
+                let previous = &mut self.previous[index as usize];
+                match recovering(plan.figure(index), value, &node.delay, at, list.back(), previous) {
+                    Some(due) => due,
+                    None => {
+                        // both vanish; of three values the one before may still be another
+                        swallow(list.pop_back());
+                        list.back().map_or(at, |event| event.due) + 1
+                    }
+                }
+            }
+            rule => {
+                let due = at + value.delay(&node.delay);
+                while list.back().is_some_and(|event| event.due >= due) {
+                    swallow(list.pop_back());
+                }
+                // events are further apart than the limit, so at most one is too near
+                if rule == Rule::Reject
+                    && list
+                        .back()
+                        .is_some_and(|event| event.value != value && due - event.due <= plan.figure(index).fs())
+                {
+                    swallow(list.pop_back());
+                }
+                due
+            }
+        };
+        if list.back().map_or(node.out, |event| event.value) != value {
+            list.push_back(Event { due, since: at, value, tag });
         }
         node.next = value;
-        let after = list.front().map(|event| event.0);
+        let after = list.front().map(|event| event.due);
         if before != after {
             if let Some(old) = before {
                 self.queue.remove(index, old);
@@ -474,8 +548,8 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         observer: &mut O,
     ) {
         let time = Time::from_fs(at);
-        let moving = self.agenda.is_moving();
-        let at_rest = self.queue_is_empty() && !moving;
+        let end = self.interrupted();
+        let at_rest = end == End::Settled;
         self.find_owners(plan, at_rest);
         let mut due = std::mem::take(&mut self.due);
         let inputs = &self.inputs;
@@ -483,16 +557,11 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         self.agenda.take(time, &plan.stimulus, instance, quiet_since, present, &mut due);
         if let Some(&moment) = due.moments.first() {
             if let Some(window) = open.take() {
-                let end = match at_rest {
-                    true => End::Settled,
-                    false if !moving && self.recurrence.any() && self.all_recurred() => self.oscillating(),
-                    false => End::Cut,
-                };
                 self.close(window, time, end, observer);
             }
             self.changed.clear();
             last_of_each(&due.becomes, |net, value| {
-                if self.inputs[net.index()].value() != Value::from(value) {
+                if self.inputs[net.index()].value() != Value::from(value) || due.bouncing.contains(&net) {
                     self.changed.push(net);
                 }
             });
@@ -590,17 +659,61 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
 
     #[cold]
     fn look_for_recurrence(&mut self, plan: &Plan) {
-        let (nodes, later, now) = (&self.nodes, &self.later, self.now);
+        let (nodes, later, previous, now) = (&self.nodes, &self.later, &self.previous, self.now);
         let pending = |index: u32, into: &mut Vec<Rest>| {
             let node = &nodes[index as usize];
             if P::MANY && node.kind.is_listed() {
-                into.extend(later[index as usize].iter().map(|event| (index, event.0 - now, event.1.value())));
+                into.extend(later[index as usize].iter().map(|event| (index, event.due - now, event.value.value())));
+                if node.kind.rule == Rule::Involution {
+                    into.push((index, age(plan.figure(index), &node.delay, previous[index as usize], now), Value::X));
+                }
             } else if node.next != node.out {
                 into.push((index, node.due - now, node.next.value()));
             }
         };
         let value = |index: u32| nodes[index as usize].out.value();
         self.recurrence.end_batch(now, &value, &pending, &|index| NetId(plan.inputs + index));
+    }
+}
+
+/// When an involution gate's output changes to `value`, for a change of its function at `at`; `None` if that would not
+/// come after its previous change, which is still pending: then both vanish. `previous` is renewed.
+#[inline(never)]
+fn recovering<L: Level, T>(
+    tau: Span,
+    value: L,
+    delay: &[u64; 2],
+    at: u64,
+    last: Option<&Event<L, T>>,
+    previous: &mut Option<i128>,
+) -> Option<u64> {
+    let now = i128::from(at);
+    let full = value.delay(delay);
+    // the other edge's: of X both are the shorter one
+    let other = if value.value() == Value::X { full } else { delay[usize::from(value.value() == Value::Zero)] };
+    let since = previous.map(|previous| now - previous);
+    let due = involution(tau, Span::from_fs(full), Span::from_fs(other), since).map(|delay| now + delay);
+    let pending = last.filter(|last| *previous == Some(i128::from(last.due)));
+    *previous = due;
+    if let Some(last) = pending
+        && due.is_none_or(|due| due <= i128::from(last.due))
+    {
+        return None;
+    }
+    // what does not vanish comes after everything that is pending and after now
+    let earliest = last.map_or(at, |last| last.due) + 1;
+    let due = due.map_or(earliest, |due| due.max(i128::from(earliest)) as u64);
+    *previous = Some(i128::from(due));
+    Some(due)
+}
+
+/// The age of an involution gate's previous change, for comparison; all ages that make no difference any more are alike.
+fn age(tau: Span, delay: &[u64; 2], previous: Option<i128>, now: u64) -> u64 {
+    let age = previous.map(|previous| i128::from(now) - previous);
+    match age.filter(|age| !recovered(tau, delay.map(Span::from_fs), *age)) {
+        // below zero if it vanished ahead; no age reaches 2^63
+        Some(age) => age as i64 as u64,
+        None => i64::MIN as u64,
     }
 }
 

@@ -40,9 +40,9 @@ pub struct Opening<'a> {
     pub moments: &'a [u32],
     /// Was the circuit at rest just before?
     pub at_rest: bool,
-    /// The inputs that end up with another value, in no particular order.
+    /// The inputs that end up with another value or bounce, in no particular order.
     pub inputs: &'a [NetId],
-    /// The last input change of this step; later than `at` only with skew.
+    /// The last input change of this step; later than `at` only with skew and bounce.
     pub settle_from: Time,
     /// The nets whose gates (or whose wires' reading gates) had events pending, and inputs with changes to come.
     pub pending: &'a [NetId],
@@ -95,8 +95,8 @@ pub struct Finish<'a> {
     pub state: &'a State,
     /// Transitions of nets and arrivals at wire ends, in the whole run.
     pub events: u64,
-    /// The run stopped before a step that the engine cannot place yet (`when`, `bounce`): its moment.
-    pub stopped_before: Option<u32>,
+    /// The moment of the step whose pattern never came: at its timeout, or since the run ended at rest or in oscillation.
+    pub never_came: Option<u32>,
 }
 
 /// How a window ended.
@@ -113,7 +113,7 @@ pub enum End {
     },
     /// A limit was reached with events pending.
     Unsettled(Hit),
-    /// The next step came before rest.
+    /// The next step, or the timeout of one that waits for a pattern, came before rest.
     Cut,
 }
 

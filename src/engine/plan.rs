@@ -7,6 +7,7 @@ use crate::delay::Filter;
 use crate::instance::Instance;
 use crate::logic::{Bits, State, Value};
 use crate::scenario::{Begin, Limits, Scenario, Stimulus};
+use crate::time::Span;
 
 /// One reader of a node's value: a gate, or a wire (numbers from the number of gates on).
 #[derive(Clone, Copy, Debug)]
@@ -17,15 +18,24 @@ pub(super) struct Fan {
 
 /// What a node is.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub(super) enum Kind {
-    /// An inertial gate whose function is a one-word table.
-    Table,
-    /// An inertial gate of another function.
-    Wide,
-    /// A transport gate whose function is a one-word table.
-    TransportTable,
-    /// A transport gate of another function.
-    TransportWide,
+pub(super) struct Kind {
+    /// Is its function a one-word table?
+    pub table: bool,
+    /// What it does with the changes of its function.
+    pub rule: Rule,
+}
+
+/// What a node does with the changes of its function.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Rule {
+    /// A gate with one pending event.
+    Inertial,
+    /// A gate that passes every pulse.
+    Transport,
+    /// A gate that swallows pulses up to a limit.
+    Reject,
+    /// A gate whose delay depends on its last change.
+    Involution,
     /// The end of a wire.
     Wire,
 }
@@ -33,7 +43,7 @@ pub(super) enum Kind {
 impl Kind {
     /// Do its pending events wait in a list?
     pub(super) fn is_listed(self) -> bool {
-        !matches!(self, Kind::Table | Kind::Wide)
+        self.rule != Rule::Inertial
     }
 }
 
@@ -52,6 +62,8 @@ pub(super) struct Plan {
     pub input_fan: Vec<(u32, u32)>,
     node_fan: Vec<(u32, u32)>,
     kinds: Vec<Kind>,
+    /// For each gate its reject limit or time constant; empty where no gate has one.
+    figures: Vec<Span>,
 }
 
 impl Plan {
@@ -75,19 +87,28 @@ impl Plan {
             node_fan.push((fan.len() as u32, fan.len() as u32 + 1));
             fan.push(Fan { node: gate.0, weight });
         }
+        let filters = &scenario.delays.filter;
         let mut kinds: Vec<Kind> = circuit
             .gates()
-            .map(|gate| {
-                let table = matches!(circuit.compiled(gate), Compiled::Table(_));
-                match (scenario.delays.filter[gate.index()], table) {
-                    (Filter::Transport, true) => Kind::TransportTable,
-                    (Filter::Transport, false) => Kind::TransportWide,
-                    (_, true) => Kind::Table,
-                    (_, false) => Kind::Wide,
-                }
+            .map(|gate| Kind {
+                table: matches!(circuit.compiled(gate), Compiled::Table(_)),
+                rule: match filters[gate.index()] {
+                    Filter::Inertial => Rule::Inertial,
+                    Filter::Transport => Rule::Transport,
+                    Filter::Reject(_) => Rule::Reject,
+                    Filter::Involution(_) => Rule::Involution,
+                },
             })
             .collect();
-        kinds.resize(gates + circuit.wire_count(), Kind::Wire);
+        kinds.resize(gates + circuit.wire_count(), Kind { table: false, rule: Rule::Wire });
+        let figure = |filter: &Filter| match filter {
+            Filter::Reject(span) | Filter::Involution(span) => *span,
+            Filter::Inertial | Filter::Transport => Span::ZERO,
+        };
+        let figures = match filters.iter().any(|filter| figure(filter) > Span::ZERO) {
+            true => filters.iter().map(figure).collect(),
+            false => Vec::new(),
+        };
 
         let with_inputs = |gate: Value| {
             let mut state = State::zeros(circuit.net_count());
@@ -115,6 +136,7 @@ impl Plan {
             input_fan,
             node_fan,
             kinds,
+            figures,
             circuit,
         }
     }
@@ -160,6 +182,16 @@ impl Plan {
         for gate in 0..self.gates as usize {
             state.set(self.inputs as usize + gate, Value::from(instance.start.get(gate)));
         }
+    }
+
+    /// The reject limit or time constant of a gate that has one.
+    pub(super) fn figure(&self, gate: u32) -> Span {
+        self.figures[gate as usize]
+    }
+
+    /// Does any gate's delay depend on its last change?
+    pub(super) fn has_involution(&self) -> bool {
+        self.kinds.iter().any(|kind| kind.rule == Rule::Involution)
     }
 
     /// Does any node keep a list of pending events?

@@ -18,8 +18,8 @@ pub struct Trace {
     pub end: Time,
     /// Transitions of nets and arrivals at wire ends.
     pub events: u64,
-    /// The moment before which the run stopped because the engine cannot place it yet.
-    pub stopped_before: Option<u32>,
+    /// The moment of the step whose pattern never came.
+    pub never_came: Option<u32>,
 }
 
 /// One transition of a net.
@@ -95,7 +95,7 @@ impl Observer for Trace {
     fn finish(&mut self, finish: &Finish<'_>) {
         self.end = finish.at;
         self.events = finish.events;
-        self.stopped_before = finish.stopped_before;
+        self.never_came = finish.never_came;
     }
 }
 

@@ -8,7 +8,8 @@ use crate::circuit::{Circuit, NetId, NetSet};
 use crate::control::Control;
 use crate::flow::Allowed;
 use crate::scenario::{
-    Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Scenario, Stimulus, Swallowed,
+    Alternative, Before, EdgeCount, EdgeSpec, Expectation, Oscillation, Permission, Place, Scenario, Stimulus,
+    Swallowed,
 };
 use crate::time::Span;
 
@@ -31,6 +32,8 @@ pub enum RuleKey {
     GlitchFree,
     /// `edges` of a step
     Edges,
+    /// `when` of a step: does its pattern come?
+    When,
     /// `[[rules.timing]]`
     Timing,
     /// `min_pulse`
@@ -55,6 +58,7 @@ impl RuleKey {
             RuleKey::Oscillation => "oscillation",
             RuleKey::GlitchFree => "glitch_free",
             RuleKey::Edges => "edges",
+            RuleKey::When => "when",
             RuleKey::Timing => "timing",
             RuleKey::MinPulse => "min_pulse",
             RuleKey::SettleWithin => "settle_within",
@@ -190,6 +194,10 @@ impl Asked {
             if let Some(expect) = &step.expect {
                 let pattern = Some(Pattern::OneOf(expect.clone()));
                 questions.push(Question { pattern, moment, ..plain(RuleKey::Expect) });
+            }
+            if let Place::When { pattern, timeout, .. } = &step.place {
+                let (pattern, bound) = (Some(Pattern::State(pattern.clone())), *timeout);
+                questions.push(Question { pattern, moment, bound, ..plain(RuleKey::When) });
             }
             for count in &step.edges {
                 let (pattern, net) = (Some(Pattern::Count(*count)), Some(count.net));

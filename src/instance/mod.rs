@@ -3,6 +3,7 @@
 //! A case is typical, least, greatest, drawn by number, or given (by a file, a search, a proof): all of them are an
 //! [`Instance`], so all of them can be run, drawn as a picture, and replayed.
 
+mod bounces;
 mod groups;
 mod sampler;
 mod strata;
@@ -23,6 +24,9 @@ pub struct Instance {
     pub places: Vec<Span>,
     /// For each step, how much later than its placed instant each input of its `set` changes; empty without skew.
     pub skews: Vec<Vec<Span>>,
+    /// For each step, how much later than its moment each input of its `set` toggles, ascending, an even number of times;
+    /// empty without bounce.
+    pub bounces: Vec<Vec<Vec<Span>>>,
     /// One a clock.
     pub clocks: Vec<ClockCase>,
     /// Output of every gate at the start, only where a run begins at random; else empty.
@@ -45,11 +49,11 @@ pub struct ClockCase {
 /// Which case of a scenario.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub enum Which {
-    /// Typical delays, middle places, no skew, no jitter.
+    /// Typical delays, middle places, no skew, no jitter, bounces evenly spread.
     Typ,
-    /// Least delays, earliest places, no skew, no jitter.
+    /// Least delays, earliest places, no skew, no jitter, fewest and shortest bounces.
     Min,
-    /// Greatest delays, latest places, no skew, no jitter.
+    /// Greatest delays, latest places, no skew, no jitter, most and longest bounces.
     Max,
     /// The sample of this number.
     Sample(u64),
@@ -113,6 +117,7 @@ impl Instance {
                 .iter()
                 .map(|step| if step.skew.is_some() { vec![Span::ZERO; step.set.len()] } else { Vec::new() })
                 .collect(),
+            bounces: stimulus.steps.iter().map(|step| bounces::even(step, pick)).collect(),
             clocks: stimulus
                 .clocks
                 .iter()

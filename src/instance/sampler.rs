@@ -14,17 +14,20 @@
 //! | sample | for each step: 1 + number of inputs it sets | place; skew of each input it sets |
 //! | sample | then for each clock: 1 + 2·count | first edge; jitter of each edge |
 //! | sample | then for each gate: 1 | start bit (the top bit) |
+//! | sample | 2^40, then for each input of a step that bounces: 2 + 2·(most pairs) | number of pairs; span; place of each toggle but the last |
 //! | 2^64 − 1 | place in the board's stream | key of a quantity's strata, for `hypercube` |
 //! | 2^64 − 2 | place in the sample's stream | likewise |
 //!
 //! What a group does with its number and each delay's own is told at [`Together`](crate::delay::Together), how a number
 //! finds its stratum in `strata.rs`: `hypercube` cuts the range of what a board draws into as many parts as there are
-//! boards in the plan, and of what a sample draws into as many as there are samples. Start bits are drawn independently.
+//! boards in the plan, and of what a sample draws into as many as there are samples. Start bits and bounces are drawn
+//! independently.
 
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
 use super::Instance;
+use super::bounces::Bounces;
 use super::groups::Groups;
 use super::strata::{BOARD_KEYS, SAMPLE_KEYS, Strata};
 use crate::delay::{DelayRange, Marginal};
@@ -46,6 +49,7 @@ pub struct Sampler {
     groups: Groups,
     /// Strata of the quantities of the plans, and of the groups; only for `hypercube`.
     strata: Option<Stratified>,
+    bounces: Bounces,
     start_place: u64,
     gates: usize,
     random_start: bool,
@@ -181,6 +185,7 @@ impl Sampler {
             sample_plan,
             groups,
             strata,
+            bounces: Bounces::new(stimulus),
             start_place: place,
             gates: gates as usize,
             random_start: scenario.begin == Begin::Random,
@@ -212,6 +217,7 @@ impl Sampler {
         let stratum = strata.as_ref().map(|it| (&it.sample, sample));
         self.draw_plan(2 * sample + 1, &plan, &Groups::default(), stratum, into);
         (self.sample_plan, self.strata) = (plan, strata);
+        self.bounces.draw(&mut self.rng, 2 * sample + 1, self.draw, &mut into.bounces);
         if self.random_start {
             self.fill_start(sample, &mut into.start);
         }

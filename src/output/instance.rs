@@ -52,7 +52,14 @@ pub fn write_instance(instance: &Instance, scenario: &Scenario) -> String {
             Some(_) => format!(", skew = {}", list(instance.skews[s].iter().map(|skew| time(*skew)))),
             None => String::new(),
         };
-        line(format_args!("{} = {{ {word} = {}{skew} }}", quoted(&step.label), time(instance.places[s])));
+        let bounce = match step.bounce {
+            Some(_) => {
+                let each = instance.bounces[s].iter().map(|it| list(it.iter().map(|toggle| time(*toggle))));
+                format!(", bounce = [{}]", each.collect::<Vec<_>>().join(", "))
+            }
+            None => String::new(),
+        };
+        line(format_args!("{} = {{ {word} = {}{skew}{bounce} }}", quoted(&step.label), time(instance.places[s])));
     }
     if !stimulus.clocks.is_empty() {
         line(format_args!("\n[clocks]"));
@@ -140,8 +147,14 @@ label = "a \"quoted\" step \\ with\ttabs and ü"
 at = [100, 900]
 set = { "bus[0]" = 1 }
 [[steps]]
+when = { qn = 1, "u1.q" = 0 }
+wait = [0, 7]
+timeout = 500
+set = { "bus[0]" = 0 }
+bounce = { lasting = [1, 20], pulses = [0, 30] }
+[[steps]]
 times = 3
-steps = [ { after = [50, 70], set = { "bus[0]" = 0 }, skew = [0, 5] }, { set = { "bus[0]" = 1 } } ]
+steps = [ { after = [50, 70], set = { "bus[0]" = 0 }, skew = [0, 5], bounce = { lasting = 9, pulses = [1, 5] } }, { set = { "bus[0]" = 1 } } ]
 [[clocks]]
 net = "clk.main"
 first = [0, 10]
@@ -175,8 +188,9 @@ count = 5
             line.unwrap_or_else(|| panic!("no line {start} in\n{written}")).to_string()
         };
         let gate = line_of("qn = { rise");
-        let loop_step = line_of("\"step 2 #1\"");
+        let loop_step = line_of("\"step 3 #1\"");
         let clock = line_of("\"clk.main\" = ");
+        let bounce = |lists: &str| format!("\"step 3 #1\" = {{ after = 50, skew = [0], bounce = {lists} }}");
         let cases = [
             (gate.clone(), String::new(), "`gates` of the case lacks `qn`"),
             (gate.clone(), format!("{gate}\nqm = {{ rise = 1, fall = 1 }}"), "the scenario has no gate `qm`"),
@@ -185,10 +199,18 @@ count = 5
             (gate.clone(), "qn = { rise = 1, fall = \"1 yd\" }".into(), "`yd` is no unit of time"),
             (gate, "qn = { rise = 1, fall = 1, fell = 1 }".into(), "unknown key `fell` in gate `qn`"),
             ("from = \"bus[0]\"".into(), "from = \"qn\"".into(), "no wire with a delay from `qn` to `u1.q`"),
-            (loop_step.clone(), String::new(), "`steps` of the case lacks `step 2 #1`"),
-            (loop_step.clone(), loop_step.replace("after", "at"), "`at` does not place step `step 2 #1`"),
-            (loop_step.clone(), "\"step 2 #1\" = { after = 50, skew = [0, 1] }".into(), "the skew has 2 times, not 1"),
-            (loop_step, "\"step 2 #1\" = { after = 50 }".into(), "step `step 2 #1` lacks `skew`"),
+            (loop_step.clone(), String::new(), "`steps` of the case lacks `step 3 #1`"),
+            (loop_step.clone(), loop_step.replace("after", "at"), "`at` does not place step `step 3 #1`"),
+            (
+                loop_step.clone(),
+                "\"step 3 #1\" = { after = 50, skew = [0, 1], bounce = [[]] }".into(),
+                "the skew has 2 times, not 1",
+            ),
+            (loop_step.clone(), "\"step 3 #1\" = { after = 50 }".into(), "step `step 3 #1` lacks `skew`"),
+            (loop_step.clone(), "\"step 3 #1\" = { after = 50, skew = [0] }".into(), "step `step 3 #1` lacks `bounce`"),
+            (loop_step.clone(), bounce("[]"), "the bounce has 0 lists, not 1"),
+            (loop_step.clone(), bounce("[[1]]"), "toggles an odd number of times"),
+            (loop_step, bounce("[[2, 1]]"), "its toggles are not in order"),
             (clock.clone(), clock.replace("high = ", "high = 9"), "is high for its whole period"),
             (clock.clone(), clock.replace("jitter = [", "jitter = [[], "), "the jitter has 11 times, not 10"),
             (clock, "clck = { first = 1 }".into(), "the scenario has no clock `clck`"),

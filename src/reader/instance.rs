@@ -46,6 +46,13 @@ pub fn read_instance(text: &str, name: &str, scenario: &Scenario) -> Result<Inst
     }
 }
 
+/// What a case says of its steps.
+struct Steps {
+    places: Vec<Span>,
+    skews: Vec<Vec<Span>>,
+    bounces: Vec<Vec<Vec<Span>>>,
+}
+
 /// What every part needs.
 struct Case<'s> {
     scenario: &'s Scenario,
@@ -72,10 +79,10 @@ impl Case<'_> {
         let case = Case { scenario, unit };
         let gate = case.gates(walk, part("gates"));
         let wire = case.wires(walk, part("wires"));
-        let (places, skews) = case.steps(walk, part("steps"));
+        let Steps { places, skews, bounces } = case.steps(walk, part("steps"));
         let clocks = case.clocks(walk, part("clocks"));
         let start = case.start(walk, part("start"));
-        Instance { delays: Delays { gate, wire }, places, skews, clocks, start }
+        Instance { delays: Delays { gate, wire }, places, skews, bounces, clocks, start }
     }
 
     /// An amount in the file's unit.
@@ -213,7 +220,7 @@ impl Case<'_> {
         delays.into_iter().map(|edges| edges.unwrap_or_default().map(|edge| edge.unwrap_or(Span::TICK))).collect()
     }
 
-    fn steps(&self, walk: &mut Walk, value: Option<&Value<'_>>) -> (Vec<Span>, Vec<Vec<Span>>) {
+    fn steps(&self, walk: &mut Walk, value: Option<&Value<'_>>) -> Steps {
         let steps = &self.scenario.stimulus.steps;
         let table = section(walk, value, "steps", !steps.is_empty());
         let mut numbers: FxHashMap<&str, usize> = FxHashMap::default();
@@ -222,6 +229,7 @@ impl Case<'_> {
         });
         let mut found: Vec<Option<(Option<Span>, Range<usize>)>> = vec![None; steps.len()];
         let mut skews = vec![Vec::new(); steps.len()];
+        let mut bounces = vec![Vec::new(); steps.len()];
         for (key, value) in table.into_iter().flat_map(|table| table.iter()) {
             let label = key.get_ref().as_ref();
             let Some(&s) = numbers.get(label) else {
@@ -229,19 +237,23 @@ impl Case<'_> {
                 continue;
             };
             let placed = place_key(&steps[s].place);
-            let skewed = steps[s].skew.is_some();
+            let (skewed, bouncing) = (steps[s].skew.is_some(), steps[s].bounce.is_some());
             let help = format!("write its place, as in `{{ {placed} = 100 }}`");
             let Some(table) = walk.table(value, &help) else {
                 found[s] = Some((None, value.span()));
                 continue;
             };
             let (mut place, mut at) = (None, value.span());
-            let (mut has_place, mut has_skew) = (false, false);
+            let (mut has_place, mut has_skew, mut has_bounce) = (false, false, false);
             for (key, value) in table.iter() {
                 match key.get_ref().as_ref() {
                     "skew" if skewed => {
                         has_skew = true;
                         skews[s] = self.skew(walk, value, steps[s].set.len());
+                    }
+                    "bounce" if bouncing => {
+                        has_bounce = true;
+                        bounces[s] = self.bounce(walk, value, steps[s].set.len());
                     }
                     word if word == placed => {
                         has_place = true;
@@ -254,7 +266,8 @@ impl Case<'_> {
                         has_place = true;
                     }
                     "skew" => walk.fault(key.span(), format!("step `{label}` has no skew"), "remove it"),
-                    _ => walk.unknown_key(key, &[placed, "skew"], &format!("step `{label}`")),
+                    "bounce" => walk.fault(key.span(), format!("step `{label}` does not bounce"), "remove it"),
+                    _ => walk.unknown_key(key, &[placed, "skew", "bounce"], &format!("step `{label}`")),
                 }
             }
             if !has_place {
@@ -264,13 +277,18 @@ impl Case<'_> {
                 let example = format!("[{}]", vec!["0"; steps[s].set.len()].join(", "));
                 walk.missing(value.span(), "skew", &format!("step `{label}`"), &example);
             }
+            if bouncing && !has_bounce {
+                let example = format!("[{}]", vec!["[]"; steps[s].set.len()].join(", "));
+                walk.missing(value.span(), "bounce", &format!("step `{label}`"), &example);
+            }
             found[s] = Some((place, at));
         }
         let missing: Vec<&str> =
             (0..steps.len()).filter(|s| found[*s].is_none()).map(|s| steps[s].label.as_str()).collect();
         lacks(walk, place_of(value), "steps", &missing);
-        self.order(walk, &found, &skews);
-        (found.into_iter().map(|step| step.and_then(|(place, _)| place).unwrap_or_default()).collect(), skews)
+        self.order(walk, &found, &skews, &bounces);
+        let places = found.into_iter().map(|step| step.and_then(|(place, _)| place).unwrap_or_default()).collect();
+        Steps { places, skews, bounces }
     }
 
     fn skew(&self, walk: &mut Walk, value: &Value<'_>, inputs: usize) -> Vec<Span> {
@@ -282,8 +300,38 @@ impl Case<'_> {
         list.iter().map(|item| self.span(walk, item).unwrap_or_default()).collect()
     }
 
+    /// For each input that a step sets, when it toggles.
+    fn bounce(&self, walk: &mut Walk, value: &Value<'_>, inputs: usize) -> Vec<Vec<Span>> {
+        let help = format!("write a list of times for each of the {inputs} inputs that the step sets");
+        let lists = walk.list(value, "a list of lists of times", &help).unwrap_or_default();
+        if lists.len() != inputs && value.get_ref().is_array() {
+            walk.fault(value.span(), format!("the bounce has {} lists, not {inputs}", lists.len()), help.clone());
+        }
+        let mut bounces = Vec::with_capacity(inputs);
+        for list in lists {
+            let times = walk.list(list, "a list of times", &help).unwrap_or_default();
+            let toggles: Vec<Span> = times.iter().map(|item| self.span(walk, item).unwrap_or_default()).collect();
+            if toggles.len() % 2 == 1 {
+                let message = "this input toggles an odd number of times, and would not keep its new value";
+                walk.fault(list.span(), message, "add or remove a time");
+            }
+            if !toggles.is_sorted() {
+                walk.fault(list.span(), "its toggles are not in order", "write earlier times first");
+            }
+            bounces.push(toggles);
+        }
+        bounces.resize(inputs, Vec::new());
+        bounces
+    }
+
     /// No step before the inputs of the one before it have changed, and none past the end of all runs.
-    fn order(&self, walk: &mut Walk, found: &[Option<(Option<Span>, Range<usize>)>], skews: &[Vec<Span>]) {
+    fn order(
+        &self,
+        walk: &mut Walk,
+        found: &[Option<(Option<Span>, Range<usize>)>],
+        skews: &[Vec<Span>],
+        bounces: &[Vec<Vec<Span>>],
+    ) {
         let mut latest = 0u64;
         let mut still = Span::ZERO;
         for (s, step) in self.scenario.stimulus.steps.iter().enumerate() {
@@ -308,8 +356,12 @@ impl Case<'_> {
                 walk.fault(at.clone(), message, "shorten the waits");
                 return;
             }
-            let ends = skews[s].iter().max().zip(skews[s].iter().min());
-            still = ends.map_or(Span::ZERO, |(most, least)| *most - *least);
+            let first = skews[s].iter().min().copied().unwrap_or_default();
+            let end = |input: usize| {
+                let skew = skews[s].get(input).copied().unwrap_or(first) - first;
+                skew + bounces[s].get(input).and_then(|toggles| toggles.last().copied()).unwrap_or_default()
+            };
+            still = (0..step.set.len()).map(end).max().unwrap_or_default();
         }
     }
 

@@ -78,8 +78,7 @@ fn sweep_one(
     threads: usize,
     control: &Control,
 ) -> Result<SweepReport, ReviewError> {
-    let samples = if scenario.cannot_run { 0 } else { scenario.plan.samples };
-    let tally = run_samples(scenario, program, asked, 0..samples, threads, control);
+    let tally = run_samples(scenario, program, asked, 0..scenario.plan.samples, threads, control);
     let report = conclude(scenario, asked, &tally);
     for window in &report.windows {
         for outcome in window.outcomes.iter().filter(|outcome| !outcome.state.has_unknown()) {
@@ -107,13 +106,8 @@ pub fn review(
 ) -> Result<Review, ReviewError> {
     let asked = Asked::of(scenario);
     let states = states(scenario, control)?;
-    let typical = match scenario.cannot_run {
-        true => None,
-        false => Some(run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?),
-    };
-    if let Some(typical) = &typical {
-        contained::run(scenario, "the typical run", &typical.trace, control)?;
-    }
+    let typical = run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?;
+    contained::run(scenario, "the typical run", &typical.trace, control)?;
     let sweep = sweep(scenario, program, &asked, threads, control)?;
     let mut shown = Vec::new();
     for index in to_show(&asked, &sweep) {
@@ -127,11 +121,8 @@ pub fn review(
         }
         shown.push((index, run));
     }
-    let mut verdict = verdict(scenario, &sweep);
-    if let Some(typical) = &typical {
-        verdict = with_typical(scenario, &sweep, typical, verdict);
-    }
-    Ok(Review { asked, states, typical, sweep, shown, verdict })
+    let verdict = with_typical(scenario, &sweep, &typical, verdict(scenario, &sweep));
+    Ok(Review { asked, states, typical: Some(typical), sweep, shown, verdict })
 }
 
 /// What makes findings alike: kind, rule and which of several, net.

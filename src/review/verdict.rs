@@ -169,7 +169,7 @@ fn own_clause(scenario: &Scenario, question: &Question) -> Option<u32> {
     let moment = question.moment?;
     let step = scenario.stimulus.step_of(&scenario.stimulus.moments[moment as usize])?;
     let own = match question.rule {
-        RuleKey::Expect | RuleKey::Edges => true,
+        RuleKey::Expect | RuleKey::Edges | RuleKey::When => true,
         RuleKey::SettleWithin => step.settle_within.is_some(),
         RuleKey::Oscillation => step.oscillation.is_some(),
         _ => false,
@@ -180,12 +180,10 @@ fn own_clause(scenario: &Scenario, question: &Question) -> Option<u32> {
 /// Why the verdict cannot be better than undecided, whatever else was found.
 fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
     let mut reasons = Vec::new();
-    if scenario.cannot_run {
-        reasons.push("the circuit has gates whose filter is not analysed yet; nothing was run".to_string());
-    } else if scenario.stimulus.moments.is_empty() {
+    if scenario.stimulus.moments.is_empty() {
         reasons.push("there is no step and no clock, so nothing was asked of the block in motion".to_string());
     }
-    if sweep.samples == 0 && !scenario.cannot_run {
+    if sweep.samples == 0 {
         reasons.push("no draw was run".to_string());
     }
     reasons.extend(scenario.not_analysed.iter().cloned());
@@ -225,7 +223,7 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
                 .map(|(reason, count)| format!("{} in up to {} draws", reason.words(), grouped(*count)))
                 .collect();
             reasons.push(format!("{what} not judged: {}", each.join(", ")));
-        } else if *judged == 0 && *written && !scenario.cannot_run {
+        } else if *judged == 0 && *written {
             reasons.push(format!("{what} was never put to the test"));
         }
     }

@@ -61,8 +61,6 @@ pub struct Scenario {
     /// What was read and checked but is not analysed yet, in the order of the file; each is a whole sentence. While there
     /// is any, no verdict is better than undecided.
     pub not_analysed: Vec<String>,
-    /// Part of the circuit cannot be simulated yet (a filter): no run takes place.
-    pub cannot_run: bool,
 }
 
 /// Where a run begins.

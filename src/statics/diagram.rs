@@ -147,7 +147,6 @@ impl Diagram {
     }
 
     /// Number of nodes made so far, the constant included.
-    #[cfg(test)]
     pub fn len(&self) -> usize {
         self.nodes.len()
     }

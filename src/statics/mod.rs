@@ -7,6 +7,7 @@
 mod agreeing;
 pub mod built;
 mod change;
+mod conjunction;
 mod diagram;
 mod explore;
 mod fewest;

@@ -3,6 +3,7 @@
 use num_bigint::BigUint;
 
 use super::GaveUp;
+use super::conjunction::conjunction;
 use super::diagram::{Diagram, Edge};
 
 /// Disjoint ternary rows that together are a set of value vectors.
@@ -37,51 +38,28 @@ impl Product {
         conjuncts: &[Edge],
         hidden: impl Fn(u32) -> bool,
     ) -> Result<Product, GaveUp> {
-        let supports: Vec<Vec<u32>> = conjuncts.iter().map(|root| diagram.support(*root)).collect();
-        let mut groups = Groups::new(levels);
-        for support in &supports {
-            for level in support.iter().skip(1) {
-                groups.tie(support[0], *level);
-            }
+        // from the top of the diagram down, told by the lowest variable: the topmost may be one that all share
+        let mut relations: Vec<Edge> = conjuncts.to_vec();
+        relations.sort_by_cached_key(|root| {
+            let support = diagram.support(*root);
+            (support.last().copied(), support.first().copied())
+        });
+        let factors = conjunction(&mut diagram, &relations, &hidden)?;
+        // in the order of their topmost level; what nothing depends on is one free part
+        let mut parts: Vec<Part> = Vec::with_capacity(factors.len() + 1);
+        let mut taken: Vec<bool> = (0..levels as u32).map(&hidden).collect();
+        for factor in &factors {
+            factor.support.iter().for_each(|level| taken[*level as usize] = true);
         }
-        let touched: Vec<bool> = {
-            let mut touched = vec![false; levels];
-            for level in supports.iter().flatten() {
-                touched[*level as usize] = true;
-            }
-            touched
-        };
-        // parts in the order of their topmost level; what nothing touches is one free part
-        let mut parts: Vec<Part> = Vec::new();
-        let mut part_of_root = vec![u32::MAX; levels + 1];
+        let free: Vec<u32> = (0..levels as u32).filter(|level| !taken[*level as usize]).collect();
+        if !free.is_empty() {
+            parts.push(Part { root: Edge::TRUE, levels: free });
+        }
+        parts.extend(factors.into_iter().map(|factor| Part { root: factor.root, levels: factor.support }));
+        parts.sort_by_key(|part| part.levels.first().copied().unwrap_or(u32::MAX));
         let mut part_of = vec![u32::MAX; levels];
-        for level in 0..levels as u32 {
-            let root = if touched[level as usize] { groups.find(level) as usize } else { levels };
-            if part_of_root[root] == u32::MAX {
-                part_of_root[root] = parts.len() as u32;
-                parts.push(Part { root: Edge::TRUE, levels: Vec::new() });
-            }
-            part_of[level as usize] = part_of_root[root];
-            if !hidden(level) {
-                parts[part_of_root[root] as usize].levels.push(level);
-            }
-        }
-        let mut of_part: Vec<Vec<usize>> = vec![Vec::new(); parts.len()];
-        let mut impossible = false;
-        for (at, support) in supports.iter().enumerate() {
-            match support.first() {
-                Some(level) => of_part[part_of[*level as usize] as usize].push(at),
-                None => impossible |= conjuncts[at] == Edge::FALSE,
-            }
-        }
-        for (part, members) in parts.iter_mut().zip(&mut of_part) {
-            // from the bottom of the diagram up: each step works on the top of what is there. Told by the lowest variable,
-            // since the topmost may be one that all share
-            members.sort_by_key(|at| std::cmp::Reverse((supports[*at].last().copied(), supports[*at][0])));
-            part.root = fold(&mut diagram, conjuncts, &supports, members, &hidden)?;
-        }
-        if impossible {
-            parts.push(Part { root: Edge::FALSE, levels: Vec::new() });
+        for (at, part) in parts.iter().enumerate() {
+            part.levels.iter().for_each(|level| part_of[*level as usize] = at as u32);
         }
         Ok(Product { diagram, parts, part_of })
     }
@@ -194,53 +172,5 @@ impl Product {
         };
         rows.sort_by_cached_key(|row| row.iter().map(|v| v.map_or(2, u8::from)).collect::<Vec<u8>>());
         Rows { rows, truncated }
-    }
-}
-
-/// The conjunction of the members of one part. A hidden variable goes as soon as nothing more depends on it.
-fn fold(
-    diagram: &mut Diagram,
-    conjuncts: &[Edge],
-    supports: &[Vec<u32>],
-    members: &[usize],
-    hidden: &impl Fn(u32) -> bool,
-) -> Result<Edge, GaveUp> {
-    let mut done_at: Vec<Vec<u32>> = vec![Vec::new(); members.len()];
-    let mut met = rustc_hash::FxHashSet::default();
-    for (step, at) in members.iter().enumerate().rev() {
-        for level in supports[*at].iter().filter(|level| hidden(**level)) {
-            if met.insert(*level) {
-                done_at[step].push(*level);
-            }
-        }
-    }
-    let mut whole = Edge::TRUE;
-    for (at, done) in members.iter().zip(&done_at) {
-        let cube = diagram.cube(done)?;
-        whole = diagram.and_exists(conjuncts[*at], whole, cube)?;
-    }
-    Ok(whole)
-}
-
-/// Levels that belong together (disjoint sets with path halving).
-struct Groups(Vec<u32>);
-
-impl Groups {
-    fn new(levels: usize) -> Groups {
-        Groups((0..levels as u32).collect())
-    }
-
-    fn find(&mut self, mut level: u32) -> u32 {
-        while self.0[level as usize] != level {
-            let above = self.0[self.0[level as usize] as usize];
-            self.0[level as usize] = above;
-            level = above;
-        }
-        level
-    }
-
-    fn tie(&mut self, a: u32, b: u32) {
-        let (a, b) = (self.find(a), self.find(b));
-        self.0[a.max(b) as usize] = a.min(b);
     }
 }

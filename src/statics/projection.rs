@@ -3,7 +3,7 @@
 use num_bigint::BigUint;
 
 use super::GaveUp;
-use super::diagram::Diagram;
+use super::diagram::{Diagram, Edge};
 use super::functions::Functions;
 use super::product::{Product, Rows};
 use super::relation::leaves;
@@ -27,6 +27,11 @@ impl Projection {
     /// Number of different value vectors.
     pub fn count(&self) -> BigUint {
         self.product.count(&self.product.unfixed())
+    }
+
+    /// Nodes of its decision diagram, the intermediate ones included: what the budget counts.
+    pub fn nodes(&self) -> usize {
+        self.product.diagram.len()
     }
 
     /// The set as disjoint ternary rows over [`Projection::nets`], at most `limit` of them.
@@ -80,12 +85,15 @@ impl StateSet<'_> {
             .collect();
         let leaves = leaves(&mut diagram, &unknown(self.circuit), &variables)?;
         let mut functions = Functions::new(self.circuit, leaves);
-        functions.prepare(&mut diagram, nets.iter().copied())?;
         let product = &self.relation.product;
         let roots: Vec<_> = product.parts.iter().map(|part| part.root).collect();
+        let possible = !roots.contains(&Edge::FALSE);
+        if possible {
+            functions.prepare(&mut diagram, nets.iter().copied())?;
+        }
         let renamed = |old: u32| level_of[self.relation.order[old as usize].index()];
         let mut conjuncts = product.diagram.copy(&roots, &mut diagram, renamed)?;
-        for net in new_below.iter().flatten() {
+        for net in new_below.iter().flatten().filter(|_| possible) {
             let shown = diagram.variable(level_of[net.index()])?;
             conjuncts.push(!diagram.xor(shown, functions.of(*net))?);
         }

@@ -10,7 +10,7 @@ use crate::control::Control;
 use crate::logic::{Bits, State, Value};
 
 /// The part of the budget that the first order may use.
-const FIRST_TRY: usize = 64;
+const FIRST_TRY: usize = 16;
 /// Nodes that it may use in any case.
 const LEAST_TRY: usize = 1 << 14;
 

@@ -4,7 +4,7 @@ use num_bigint::BigUint;
 
 use super::GaveUp;
 use super::diagram::Diagram;
-use super::multiplicity::multiplicity;
+use super::multiplicity::Choices;
 use super::product::Rows;
 use super::relation::{Relation, complete, net_by_net};
 use crate::circuit::{Circuit, NetId};
@@ -74,6 +74,12 @@ impl<'a> StateSet<'a> {
     pub fn count(&self) -> BigUint {
         let product = &self.relation.product;
         product.count(&product.unfixed())
+    }
+
+    /// Nodes of its decision diagram, the intermediate ones of the way there included: what the budget
+    /// [`Control::nodes`] counts.
+    pub fn nodes(&self) -> usize {
+        self.relation.product.diagram.len()
     }
 
     /// The feedback nets, in net order; with the inputs they determine every net.
@@ -146,7 +152,8 @@ impl<'a> StateSet<'a> {
         let unfixed = product.unfixed();
         for part in &product.parts {
             let mut diagram = Diagram::new(&self.control);
-            let found = multiplicity(&product.diagram, part.root, &part.levels, is_input, &mut diagram)?;
+            let choices = Choices::of(&product.diagram, part.root, &part.levels);
+            let found = choices.multiplicity(is_input, &mut diagram)?;
             let single = diagram.and(found.some, !found.several)?;
             let outer: Vec<u32> = part.levels.iter().copied().filter(|level| is_input(*level)).collect();
             some *= diagram.count(found.some, &outer, &unfixed);

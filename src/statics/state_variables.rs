@@ -6,7 +6,7 @@ use rustc_hash::{FxHashMap, FxHashSet};
 use super::GaveUp;
 use super::diagram::{Diagram, Edge};
 use super::fewest::fewest;
-use super::multiplicity::multiplicity;
+use super::multiplicity::Choices;
 use super::product::Part;
 use super::relation::complete;
 use super::state_set::StateSet;
@@ -168,13 +168,13 @@ impl StateSet<'_> {
         for net in variables {
             outer[self.level(*net) as usize] = true;
         }
+        let choices = Choices::of(&product.diagram, part.root, &part.levels);
         let mut kept = Vec::new();
         for net in feedback {
             let level = self.level(*net) as usize;
             outer[level] = false;
             let mut diagram = Diagram::new(&self.control);
-            let given = |level: u32| outer[level as usize];
-            let left = multiplicity(&product.diagram, part.root, &part.levels, given, &mut diagram)?;
+            let left = choices.multiplicity(|level| outer[level as usize], &mut diagram)?;
             if left.several != Edge::FALSE {
                 outer[level] = true;
                 kept.push(*net);

@@ -24,6 +24,11 @@ impl Diagram {
 
     /// The levels that a function depends on, topmost first.
     pub fn support(&self, root: Edge) -> Vec<u32> {
+        self.extent(root).0
+    }
+
+    /// The levels that a function depends on, topmost first, and its number of nodes, constants left out.
+    pub fn extent(&self, root: Edge) -> (Vec<u32>, usize) {
         let mut seen = FxHashSet::default();
         let mut open = vec![root];
         let mut levels = Vec::new();
@@ -36,7 +41,7 @@ impl Diagram {
         }
         levels.sort_unstable();
         levels.dedup();
-        levels
+        (levels, seen.len())
     }
 
     /// The value of a function.

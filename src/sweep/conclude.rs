@@ -37,9 +37,6 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
                     not_judged.push((reason, count));
                 }
             }
-            if scenario.cannot_run {
-                not_judged = vec![(Reason::NotAnalysedYet, scenario.plan.samples)];
-            }
             RuleReport {
                 question: question.clone(),
                 judged: row.judged,

@@ -141,7 +141,6 @@ impl Case {
             conditions: Vec::new(),
             notes: Vec::new(),
             not_analysed: Vec::new(),
-            cannot_run: false,
         }
     }
 }

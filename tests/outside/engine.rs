@@ -537,57 +537,7 @@ fn c_element_transition_table() {
     }
 }
 
-// ---- IEEE 1076
-
-fn through_a_buffer(filter: Filter, rise: u64, fall: u64, input: &[u64]) -> Run {
-    let mut world = World::new();
-    world.input("a", false).gate_edges("y", Buf, &["a"], rise, fall).filter(filter);
-    for (n, at) in input.iter().enumerate() {
-        world.at(*at, &[("a", n % 2 == 0)]);
-    }
-    world.run()
-}
-
-/// IEEE 1076: inertial is the default and rejects pulses shorter than the delay, `transport` keeps all pulses [PAGE
-/// https://electronics.stackexchange.com/questions/136948/vhdl-delay-mechanism]. A pulse as long as the delay has matured
-/// and passes [reasoned from the rule].
-#[test]
-fn ieee_1076_inertial_and_transport() {
-    for width in [1, 9, 10, 11, 100] {
-        let run = through_a_buffer(Inertial, 10, 10, &[0, width]);
-        let passes = if width >= 10 { vec![(10, 1), (10 + width, 0)] } else { vec![] };
-        assert_eq!(run.of("y"), passes, "inertial, width {width}");
-        let swallowed: Vec<(u64, u64)> = run.record.swallowed.iter().map(|s| (s.age, s.delay)).collect();
-        assert_eq!(swallowed, if width < 10 { vec![(width, 10)] } else { vec![] });
-        let run = through_a_buffer(Transport, 10, 10, &[0, width]);
-        assert_eq!(run.of("y"), [(10, 1), (10 + width, 0)], "transport, width {width}");
-        assert_eq!(run.record.swallowed, []);
-    }
-    // a low pulse within a high; and a train: the low from 32 to 40 is too short, the high ends at 41
-    assert_eq!(through_a_buffer(Inertial, 10, 10, &[0, 50, 59]).of("y"), [(10, 1)]);
-    assert_eq!(through_a_buffer(Inertial, 10, 10, &[0, 50, 60]).of("y"), [(10, 1), (60, 0), (70, 1)]);
-    let train = [0, 3, 20, 32, 40, 41];
-    assert_eq!(through_a_buffer(Inertial, 10, 10, &train).of("y"), [(30, 1), (51, 0)]);
-    let all: Vec<(u64, u8)> = train.iter().enumerate().map(|(n, at)| (at + 10, 1 - (n % 2) as u8)).collect();
-    assert_eq!(through_a_buffer(Transport, 10, 10, &train).of("y"), all);
-}
-
-/// IEEE 1076: a new assignment deletes all transactions at or after its own time [PAGE
-/// https://th4.ilovetranslation.com/XTmGUst1U4p9QESyW-HC5B==d]. Rise 10, fall 3: a fall scheduled at or before the rise
-/// takes it out, one that comes later leaves a pulse of what is left.
-#[test]
-fn ieee_1076_deletes_what_is_scheduled_for_the_same_time_or_later() {
-    for width in 1..=12 {
-        let run = through_a_buffer(Transport, 10, 3, &[0, width]);
-        let passes = if width + 3 > 10 { vec![(10, 1), (width + 3, 0)] } else { vec![] };
-        assert_eq!(run.of("y"), passes, "width {width}");
-        // the longer way down stretches the pulse
-        assert_eq!(through_a_buffer(Transport, 3, 10, &[0, width]).of("y"), [(3, 1), (width + 10, 0)]);
-    }
-    // two pulses on the way; the second fall deletes only the second rise, not what lies before
-    let run = through_a_buffer(Transport, 10, 3, &[0, 8, 9, 11]);
-    assert_eq!(run.of("y"), [(10, 1), (11, 0)]);
-}
+// ---- IEEE 1364
 
 /// The functions of IEEE 1364's gate primitives [PAGE https://www.doczj.com/doc/a27680282.html]: and, nand, or, nor, xor,
 /// xnor (of several inputs: the complement of the parity), buf, not.

@@ -4,6 +4,7 @@
 
 mod eichelberger;
 mod engine;
+mod filters;
 mod flow_tables;
 mod hazards;
 mod large_networks;

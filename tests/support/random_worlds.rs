@@ -25,13 +25,47 @@ pub struct Kind {
     pub rings: bool,
     /// Gates that make a row of pulses of every change of an input, and steps that mostly wait for rest.
     pub hazards: bool,
+    /// How many of the steps bounce, and how many of the others wait for a pattern.
+    pub hands: f64,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum Filters {
     Inertial,
     Transport,
+    /// Inertial and transport gates.
     Mixed,
+    Reject,
+    Involution,
+    /// Gates of all kinds.
+    All,
+}
+
+/// A filter of a kind that fits a gate's delays.
+fn filter(rng: &mut ChaCha8Rng, filters: Filters, delay: [DelayRange; 2]) -> Filter {
+    let [fall, rise] = delay.map(|range| range.min.fs());
+    let least = fall.min(rise);
+    match filters {
+        Filters::Inertial => Filter::Inertial,
+        Filters::Transport => Filter::Transport,
+        Filters::Mixed => *[Filter::Inertial, Filter::Transport].choose(rng).unwrap(),
+        // a limit of at least 1 lies below the least delay
+        Filters::Reject if least == 1 => Filter::Transport,
+        Filters::Reject => Filter::Reject(fs(rng.random_range(1..least))),
+        Filters::Involution => {
+            // from hardly felt to hardly causal
+            let causal = |tau: u64| (-(fall as f64) / tau as f64).exp() + (-(rise as f64) / tau as f64).exp() < 1.0;
+            let mut tau = rng.random_range(1..=2 * least.max(2));
+            while tau > 1 && !causal(tau) {
+                tau -= 1;
+            }
+            if causal(tau) { Filter::Involution(fs(tau)) } else { Filter::Transport }
+        }
+        Filters::All => {
+            let one = *[Filters::Mixed, Filters::Reject, Filters::Involution, Filters::Involution].choose(rng).unwrap();
+            filter(rng, one, delay)
+        }
+    }
 }
 
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -152,11 +186,7 @@ fn world(rng: &mut ChaCha8Rng, kind: Kind) -> World {
         pulses(&mut world, rng, kind.delays);
     }
     for gate in &mut world.gates {
-        gate.filter = match kind.filters {
-            Filters::Inertial => Filter::Inertial,
-            Filters::Transport => Filter::Transport,
-            Filters::Mixed => *[Filter::Inertial, Filter::Transport].choose(rng).unwrap(),
-        };
+        gate.filter = filter(rng, kind.filters, gate.delay);
     }
     for gate in world.gates.clone() {
         let mut pins = gate.pins.clone();
@@ -214,7 +244,7 @@ fn clock_and_steps(world: &mut World, rng: &mut ChaCha8Rng, kind: Kind, clocks: 
             _ => Place::After(exact(skew_before + wait)),
         };
         by_time &= !matches!(place, Place::Rest(_));
-        earliest += skew_before + wait;
+        earliest += wait;
         let mut inputs = free.clone();
         inputs.retain(|_| rng.random_bool(0.7));
         let set: Vec<(&str, bool)> = inputs.iter().map(|net| (net.as_str(), rng.random())).collect();
@@ -224,14 +254,23 @@ fn clock_and_steps(world: &mut World, rng: &mut ChaCha8Rng, kind: Kind, clocks: 
             skew_before = lengths.draw(rng);
             world.steps.last_mut().unwrap().skew = Some(DelayRange::between(fs(0), fs(skew_before)));
         }
-        earliest += skew_before;
-        if rng.random_bool(0.02) {
-            let bounce = Bounce { lasting: exact(3), pulses: (1, 2) };
+        if rng.random_bool(kind.hands) {
+            let (shortest, fewest) = (lengths.draw(rng), rng.random_range(0..3));
+            let lasting = range(rng, shortest);
+            skew_before += lasting.max.fs();
+            let bounce = Bounce { lasting, pulses: (fewest, fewest + rng.random_range(0..3)) };
             world.steps.last_mut().unwrap().bounce = Some(bounce);
-        } else if rng.random_bool(0.02) {
-            let pattern = vec![(NetId(0), true)];
-            world.steps.last_mut().unwrap().place = Place::When { pattern, wait: exact(1), timeout: None };
+        } else if rng.random_bool(kind.hands) {
+            let nets = (world.inputs.len() + world.gates.len()) as u32;
+            let pattern =
+                (0..rng.random_range(1..=2)).map(|_| (NetId(rng.random_range(0..nets)), rng.random())).collect();
+            let least = if rng.random() { 0 } else { lengths.draw(rng) };
+            let wait = range(rng, least);
+            let timeout = rng.random_bool(0.5).then(|| fs(rng.random_range(1..=8) * lengths.draw(rng)));
+            world.steps.last_mut().unwrap().place = Place::When { pattern, wait, timeout };
+            by_time = false;
         }
+        earliest += skew_before;
     }
 }
 
@@ -247,6 +286,7 @@ pub const PLAIN: Kind = Kind {
     limits: &[7, 40, 300, 2000],
     rings: false,
     hazards: false,
+    hands: 0.02,
 };
 
 /// One random case.

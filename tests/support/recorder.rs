@@ -20,8 +20,8 @@ pub struct Record {
     pub events: u64,
     /// The last instant that was looked at.
     pub end: u64,
-    /// The moment of a step that the engine cannot place yet.
-    pub stopped_before: Option<u32>,
+    /// The moment of the step whose pattern never came.
+    pub never_came: Option<u32>,
 }
 
 /// One window.
@@ -183,6 +183,6 @@ impl Observer for Recorder {
         }
         self.record.events = finish.events;
         self.record.end = finish.at.fs();
-        self.record.stopped_before = finish.stopped_before;
+        self.record.never_came = finish.never_came;
     }
 }

@@ -39,13 +39,20 @@ struct Slow<'a> {
     nets: Vec<Value>,
     ends: Vec<Value>,
     pending: BTreeSet<Event>,
-    /// Input changes of steps with skew that are still to come, in the order in which they were placed.
+    /// For each gate the last change of its output that was computed, also if it vanished; `None`: none, or endlessly
+    /// far back.
+    computed: Vec<Option<i128>>,
+    /// Input changes of steps with skew or bounce that are still to come, in the order in which they were placed.
     coming: Vec<(u64, NetId, bool)>,
     /// Clock edges still to come.
     edges: BTreeSet<(u64, u32, NetId, bool)>,
     next_step: usize,
     /// The instant of the step before.
     placed: u64,
+    /// When the last input of the steps before has changed.
+    inputs_done: u64,
+    /// When the pattern came that the next step waits for.
+    came: Option<u64>,
     blocks: Vec<Block>,
     window: Option<Open>,
     record: Record,
@@ -81,10 +88,13 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
         nets,
         ends,
         pending: BTreeSet::new(),
+        computed: vec![None; circuit.gate_count()],
         coming: Vec::new(),
         edges,
         next_step: 0,
         placed: 0,
+        inputs_done: 0,
+        came: None,
         blocks,
         window: None,
         record,
@@ -96,6 +106,7 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
             slow.evaluate(gate);
         }
     }
+    slow.look_for_pattern();
     while slow.batch() {}
     slow.record
 }
@@ -116,12 +127,39 @@ impl Slow<'_> {
         let step = self.scenario.stimulus.steps.get(self.next_step)?;
         let wait = self.instance.places[self.next_step].fs();
         match step.place {
-            _ if step.bounce.is_some() => None,
             Place::At(_) => Some(wait),
             Place::After(_) => Some(self.placed + wait),
             Place::Rest(_) => (!self.busy() && self.edges.is_empty()).then_some(self.now + wait),
-            Place::When { .. } => None,
+            Place::When { .. } => self.came.map(|came| came + wait),
         }
+    }
+
+    /// Looks whether the next step waits for a pattern that shows now.
+    fn look_for_pattern(&mut self) {
+        let Some(step) = self.scenario.stimulus.steps.get(self.next_step) else { return };
+        if let Place::When { pattern, .. } = &step.place
+            && self.now >= self.inputs_done
+            && pattern.iter().all(|(net, bit)| self.nets[net.index()] == Value::from(*bit))
+        {
+            self.came = self.came.or(Some(self.now));
+        }
+    }
+
+    /// The step that waits for a pattern which has not come, and when it gives up.
+    fn waiting(&self) -> Option<(usize, Option<u64>)> {
+        match self.scenario.stimulus.steps.get(self.next_step)?.place {
+            Place::When { timeout, .. } if self.came.is_none() => {
+                Some((self.next_step, timeout.map(|timeout| self.placed + timeout.fs())))
+            }
+            _ => None,
+        }
+    }
+
+    /// The run ends without the pattern that the next step waits for.
+    fn give_up(&mut self, at: u64, end: End) -> bool {
+        self.close(at, end);
+        self.record.never_came = self.waiting().map(|(step, _)| self.moment(step));
+        false
     }
 
     /// Is anything pending, input changes to come included?
@@ -133,7 +171,9 @@ impl Slow<'_> {
     fn timed_to_come(&self) -> bool {
         let next = self.scenario.stimulus.steps.get(self.next_step);
         !self.edges.is_empty()
-            || next.is_some_and(|step| step.bounce.is_none() && matches!(step.place, Place::At(_) | Place::After(_)))
+            || self.came.is_some()
+            || self.waiting().is_some_and(|(_, timeout)| timeout.is_some())
+            || next.is_some_and(|step| matches!(step.place, Place::At(_) | Place::After(_)))
     }
 
     /// Have all blocks with events pending recurred? Then the first of them.
@@ -189,13 +229,20 @@ impl Slow<'_> {
         let change = self.coming.iter().map(|change| change.0).min();
         let edge = self.edges.first().map(|edge| edge.0);
         let step = self.step_instant();
-        let Some(at) = [event, change, edge, step].into_iter().flatten().min() else {
-            self.close(self.now, End::Settled);
-            // it ends at rest before a step that is not analysed yet
-            self.record.stopped_before =
-                (self.next_step < self.scenario.stimulus.steps.len()).then(|| self.moment(self.next_step));
-            return false;
-        };
+        let next = [event, change, edge, step].into_iter().flatten().min();
+        if let Some((_, Some(timeout))) = self.waiting() {
+            let limit = self.scenario.limits.time.zip(self.window.as_ref()).filter(|_| self.busy());
+            let limit = limit.map(|(limit, open)| open.start + limit.fs());
+            // what happens at the very instant of the timeout is in time
+            if next.is_none_or(|at| at > timeout) && limit.is_none_or(|at| at >= timeout) {
+                let end = match self.busy() {
+                    false => End::Settled,
+                    true => self.oscillation().map_or(End::Cut, Slow::end_of),
+                };
+                return self.give_up(timeout, end);
+            }
+        }
+        let Some(at) = next else { return self.give_up(self.now, End::Settled) };
         if let (Some(limit), Some(open)) = (self.scenario.limits.time, &self.window)
             && self.busy()
             && at > open.start + limit.fs()
@@ -241,10 +288,10 @@ impl Slow<'_> {
             }
         }
         self.react(&before.0, &before.1);
+        self.look_for_pattern();
         if self.busy() {
             if let (Some(end), false) = (self.oscillation().map(Slow::end_of), self.timed_to_come()) {
-                self.close(at, end);
-                return false;
+                return self.give_up(at, end);
             }
             if self.window.as_ref().is_some_and(|open| open.transitions >= self.scenario.limits.transitions) {
                 self.close(at, End::Unsettled(Hit::Transitions));
@@ -263,6 +310,7 @@ impl Slow<'_> {
             RecordedOpening { pending: self.pending_nets(), state: self.nets.clone(), ..RecordedOpening::default() };
         let mut settle_from = at;
         let mut last: BTreeMap<NetId, bool> = BTreeMap::new();
+        let mut bouncing: BTreeSet<NetId> = BTreeSet::new();
         // a step by rest is a batch of its own; steps right after it, without a wait, belong to it
         while self.step_instant() == Some(at) && (opening.moments.is_empty() || !self.by_rest()) {
             opening.moments.push(self.moment(self.next_step));
@@ -272,20 +320,34 @@ impl Slow<'_> {
                 let when = at + skews.map_or(0, |skews| skews[entry].fs()) - least;
                 let before = self.coming.iter().rfind(|change| change.1 == *net).map(|change| Value::from(change.2));
                 last.insert(*net, *bit);
-                // an input that is set to what it has does not change
-                if before.unwrap_or(self.nets[net.index()]) != Value::from(*bit) {
-                    settle_from = settle_from.max(when);
-                    self.coming.push((when, *net, *bit));
+                // an input that is set to what it has does not change, but its contact bounces all the same
+                let mut before = before.unwrap_or(self.nets[net.index()]);
+                let mut moves = BTreeMap::from([(when, *bit)]);
+                for (n, toggle) in self.instance.bounces[self.next_step].get(entry).into_iter().flatten().enumerate() {
+                    moves.insert(when + toggle.fs(), *bit ^ (n % 2 == 0));
+                }
+                for (when, bit) in moves {
+                    if before != Value::from(bit) {
+                        settle_from = settle_from.max(when);
+                        self.coming.push((when, *net, bit));
+                        if self.scenario.stimulus.steps[self.next_step].bounce.is_some() {
+                            bouncing.insert(*net);
+                        }
+                    }
+                    before = Value::from(bit);
                 }
             }
             self.placed = at;
+            self.inputs_done = settle_from;
+            self.came = None;
             self.next_step += 1;
         }
         for (_, moment, net, bit) in self.edges.iter().filter(|edge| edge.0 == at) {
             opening.moments.push(*moment);
             last.insert(*net, *bit);
         }
-        let changes = |(net, bit): &(NetId, bool)| self.nets[net.index()] != Value::from(*bit);
+        let changes =
+            |(net, bit): &(NetId, bool)| self.nets[net.index()] != Value::from(*bit) || bouncing.contains(net);
         opening.inputs = last.into_iter().filter(changes).map(|(net, _)| net).collect();
         self.window = Some(Open { opening, start: at, settle_from, last: None, at_rest, transitions: 0 });
     }
@@ -333,7 +395,8 @@ impl Slow<'_> {
 
         let mut blocks = std::mem::take(&mut self.blocks);
         for block in &mut blocks {
-            block.after_batch(at, &changed, &arrived, &self.nets, &self.ends, &self.pending);
+            let age = |node: usize| self.age(node);
+            block.after_batch(at, &changed, &arrived, &self.nets, &self.ends, &self.pending, age);
         }
         self.blocks = blocks;
     }
@@ -377,8 +440,59 @@ impl Slow<'_> {
                 }
             }
             Filter::Transport => self.schedule_all(node, v, f, delay),
-            filter => panic!("{filter:?} is not part of this engine"),
+            Filter::Reject(limit) => {
+                self.schedule_all(node, v, f, delay);
+                // the newest event stands; what lies before it, not farther than the limit, made a pulse too short
+                let mine = |pending: &BTreeSet<Event>| -> Vec<Event> {
+                    pending.iter().filter(|event| event.node == node).copied().collect()
+                };
+                let events = mine(&self.pending);
+                let Some((newest, before)) = events.split_last() else { return };
+                if newest.since < self.now {
+                    return;
+                }
+                for event in before.iter().filter(|event| newest.at - event.at <= limit.fs()) {
+                    self.cancel(*event);
+                }
+                // without them it may change nothing any more
+                let events = mine(&self.pending);
+                if events.iter().rev().nth(1).map_or(v, |event| event.value) == newest.value {
+                    self.pending.remove(newest);
+                }
+            }
+            Filter::Involution(tau) => {
+                let newest = self.pending.iter().rfind(|event| event.node == node).copied();
+                if newest.map_or(v, |event| event.value) == f {
+                    return;
+                }
+                let now = i128::from(self.now);
+                let since = self.computed[node].map(|last| now - last);
+                let at = involution(tau, delay, f == Value::One, since).map(|delta| match since {
+                    // the previous change is over: at least 1
+                    Some(0..) | None => now + delta.max(1),
+                    Some(_) => now + delta,
+                });
+                match self.computed[node] {
+                    Some(last) if at.is_none_or(|at| at <= last) => {
+                        let last = newest.filter(|event| i128::from(event.at) == last);
+                        self.cancel(last.expect("what came before has not vanished itself"));
+                    }
+                    _ => {
+                        let at = at.expect("after something, or the first") as u64;
+                        self.pending.insert(Event { at, node, value: f, since: self.now });
+                    }
+                }
+                self.computed[node] = at;
+            }
         }
+    }
+
+    /// How long ago an involution gate's last computed change was, while that still changes a delay.
+    fn age(&self, node: usize) -> Option<i128> {
+        let Some(Filter::Involution(tau)) = self.scenario.delays.filter.get(node) else { return None };
+        let (age, delay) = (i128::from(self.now) - self.computed[node]?, self.instance.delays.gate[node]);
+        let full = |rise| involution(*tau, delay, rise, Some(age)) == involution(*tau, delay, rise, None);
+        (!full(false) || !full(true)).then_some(age)
     }
 
     /// Transport: removes what is scheduled for the new time or later; what would change nothing is no event.
@@ -410,6 +524,15 @@ impl Slow<'_> {
             });
         }
     }
+}
+
+/// The formulas of the involution model, rounded; `None`: minus infinity.
+fn involution(tau: Span, delay: [Span; 2], rise: bool, since: Option<i128>) -> Option<i128> {
+    let [fall, up] = delay.map(|span| span.fs() as f64);
+    let (this, other) = if rise { (up, fall) } else { (fall, up) };
+    let Some(since) = since else { return Some(this as i128) };
+    let inside = 1.0 - (-(since as f64 + other) / tau.fs() as f64).exp();
+    (inside > 0.0).then(|| (tau.fs() as f64 * inside.ln() + this).round() as i128)
 }
 
 /// To 1 takes rise, to 0 takes fall, to X the shorter of both.

@@ -32,6 +32,7 @@ struct Note {
     at: u64,
     values: Vec<Value>,
     remaining: BTreeSet<(usize, u64, Value)>,
+    ages: Vec<Option<i128>>,
     passes: Vec<u64>,
     moved: Vec<NetId>,
 }
@@ -59,6 +60,8 @@ impl Block {
         self.nodes.contains(&node)
     }
 
+    /// `age`: of gates with a memory of their last change, while it matters.
+    #[allow(clippy::too_many_arguments)]
     pub fn after_batch(
         &mut self,
         at: u64,
@@ -67,6 +70,7 @@ impl Block {
         nets: &[Value],
         ends: &[Value],
         pending: &BTreeSet<Event>,
+        age: impl Fn(usize) -> Option<i128>,
     ) {
         if self.inputs.iter().any(|input| changed.contains(input)) {
             (self.count, self.next, self.note, self.recurred) = (0, 64, None, None);
@@ -82,13 +86,14 @@ impl Block {
         let remaining = || -> BTreeSet<(usize, u64, Value)> {
             pending.iter().filter(|e| self.nodes.contains(&e.node)).map(|e| (e.node, e.at - at, e.value)).collect()
         };
+        let ages = || -> Vec<Option<i128>> { self.nodes.iter().map(|node| age(*node)).collect() };
         if let Some(note) = &mut self.note {
             note.moved.extend(self.nets.iter().filter(|net| changed.contains(net)));
         }
         if let Some(note) = &mut self.note
             && note.values == values()
         {
-            if note.remaining == remaining() {
+            if note.remaining == remaining() && note.ages == ages() {
                 let often = |net: &NetId| (*net, note.moved.iter().filter(|other| *other == net).count() as u32);
                 let moving = self.nets.iter().map(often).filter(|(_, count)| *count > 0).collect();
                 self.recurred = Some(Recurred { at, period: at - note.at, range: None, moving });
@@ -108,8 +113,14 @@ impl Block {
             while self.next <= self.count {
                 self.next *= 2;
             }
-            self.note =
-                Some(Note { at, values: values(), remaining: remaining(), passes: Vec::new(), moved: Vec::new() });
+            self.note = Some(Note {
+                at,
+                values: values(),
+                remaining: remaining(),
+                ages: ages(),
+                passes: Vec::new(),
+                moved: Vec::new(),
+            });
         }
     }
 }

@@ -198,7 +198,6 @@ impl World {
             conditions: Vec::new(),
             notes: Vec::new(),
             not_analysed: Vec::new(),
-            cannot_run: false,
         }
     }
 

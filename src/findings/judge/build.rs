@@ -13,7 +13,7 @@ use crate::findings::asked::{Asked, RuleKey};
 use crate::findings::pulses::Pulses;
 use crate::logic::{State, Value};
 use crate::scenario::{Before, Begin, Scenario, Swallowed};
-use crate::time::Span;
+use crate::time::{Span, Time};
 
 impl<S: Sink> Judge<S> {
     /// The judges of a scenario, for the questions that [`Asked::of`] made of it.
@@ -154,7 +154,9 @@ impl<S: Sink> Judge<S> {
         };
         let mut by_moment = vec![Vec::new(); moments];
         for (q, question) in asked.questions.iter().enumerate() {
-            if let Some(moment) = question.moment {
+            if let Some(moment) = question.moment
+                && question.rule != RuleKey::When
+            {
                 by_moment[moment as usize].push(q as u32);
             }
         }
@@ -167,6 +169,8 @@ impl<S: Sink> Judge<S> {
         let said = stimulus.moments.iter().map(|moment| stimulus.step_of(moment).and_then(|step| step.oscillation));
         let own_oscillation = said.clone().map(|own| own.is_some()).collect();
         let oscillation = said.map(|own| own.unwrap_or(rules.oscillation)).collect();
+        let whens = asked.questions.iter().enumerate().filter(|(_, q)| q.rule == RuleKey::When);
+        let when_questions = whens.filter_map(|(q, question)| Some((question.moment?, q as u32))).collect();
         Judge {
             sink,
             inputs: circuit.input_count() as u32,
@@ -180,6 +184,7 @@ impl<S: Sink> Judge<S> {
                 Before::Forbidden => by_rule(RuleKey::BeforeRest, 0, None),
                 Before::Allowed => vec![NONE; moments],
             },
+            when_questions,
             swallowed_broken: vec![false; swallowed_questions.len()],
             swallowed_questions,
             by_moment,
@@ -198,6 +203,7 @@ impl<S: Sink> Judge<S> {
             never_dirty: false,
             timing_dirty: false,
             moment: None,
+            opened: Time::ZERO,
             oscillation_of: Vec::new(),
             reached: vec![false; moments],
             reached_count: 0,

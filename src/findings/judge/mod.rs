@@ -49,6 +49,8 @@ pub struct Judge<S> {
     race_questions: Vec<u32>,
     oscillation_questions: Vec<u32>,
     before_rest_questions: Vec<u32>,
+    /// Moment and number of the questions whether a pattern comes.
+    when_questions: Vec<(u32, u32)>,
     swallowed_questions: Vec<(Option<NetId>, u32)>,
     /// Questions of each moment that wait for it to be reached.
     by_moment: Vec<Vec<u32>>,
@@ -70,6 +72,8 @@ pub struct Judge<S> {
     timing_dirty: bool,
 
     moment: Option<u32>,
+    /// When the present window began.
+    opened: Time,
     /// The moments that say what is asked of oscillation in this window: those of steps that say it themselves, else
     /// the one that names the window.
     oscillation_of: Vec<u32>,
@@ -287,7 +291,7 @@ impl<S: Sink> Observer for Judge<S> {
     type Tag = ();
 
     fn start(&mut self, state: &State) {
-        self.moment = None;
+        (self.moment, self.opened) = (None, Time::ZERO);
         self.oscillation_of.clear();
         self.reached.fill(false);
         self.reached_count = 0;
@@ -359,6 +363,7 @@ impl<S: Sink> Observer for Judge<S> {
             reference.open(opening.moments);
         }
         self.moment = opening.moments.first().copied();
+        self.opened = opening.at;
         self.oscillation_of.clear();
         self.oscillation_of.extend(opening.moments.iter().filter(|moment| self.own_oscillation[**moment as usize]));
         if self.oscillation_of.is_empty() {
@@ -452,9 +457,10 @@ impl<S: Sink> Observer for Judge<S> {
     fn finish(&mut self, finish: &Finish<'_>) {
         self.shut = finish.end;
         self.close_nets(finish.state, |_| true);
-        let unseen = match (finish.end, finish.stopped_before) {
+        // what comes after a pattern that never came was not seen
+        let unseen = match (finish.end, finish.never_came) {
             (End::Unsettled(_), _) => Some(Reason::Unsettled),
-            (_, Some(_)) => Some(Reason::NotAnalysedYet),
+            (_, Some(_)) => Some(Reason::NotReached),
             _ => None,
         };
         let late = &mut self.late;
@@ -491,14 +497,24 @@ impl<S: Sink> Observer for Judge<S> {
             }
         }
         if self.reached_count < self.reached.len() {
-            let reason = match unseen {
-                Some(Reason::NotAnalysedYet) => Reason::NotAnalysedYet,
-                _ => Reason::NotReached,
-            };
             for (moment, _) in self.reached.iter().enumerate().filter(|(_, reached)| !**reached) {
                 for question in &self.by_moment[moment] {
-                    self.sink.not_judged(*question, reason);
+                    self.sink.not_judged(*question, Reason::NotReached);
                 }
+            }
+        }
+        for (moment, question) in &self.when_questions {
+            let never_came = finish.never_came == Some(*moment);
+            if !never_came && !self.reached[*moment as usize] {
+                self.sink.not_judged(*question, Reason::NotReached);
+                continue;
+            }
+            self.sink.judged(*question, never_came, None);
+            if never_came {
+                let (kind, question, moment) = (Kind::NeverCame, Some(*question), Some(*moment));
+                let subject = Subject { kind, shape: None, question, net: None, moment };
+                let place = Some((self.opened, finish.at));
+                self.sink.fact(Fact { subject, breaks_rule: true, measure: None, place });
             }
         }
     }

@@ -24,7 +24,6 @@ struct Check<'a> {
     notes: &'a [String],
     assumptions: Vec<String>,
     not_analysed: &'a [String],
-    can_run: bool,
 }
 
 /// The document of `check`. `steps` counts listed steps with loops unrolled, `moments` also clock edges and power-up.
@@ -49,6 +48,5 @@ pub fn check(scenario: &Scenario) -> String {
         notes: &scenario.notes,
         assumptions: assumptions(scenario, usize::MAX),
         not_analysed: &scenario.not_analysed,
-        can_run: !scenario.cannot_run,
     })
 }

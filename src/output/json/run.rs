@@ -21,7 +21,7 @@ pub(super) struct Run<'a> {
     facts: Lines<Found<'a>>,
     judged: u64,
     not_judged: Lines<Unjudged<'a>>,
-    stopped_before: Option<&'a str>,
+    never_came: Option<&'a str>,
 }
 
 #[derive(Serialize)]
@@ -129,7 +129,7 @@ impl<'a> Run<'a> {
             facts: Lines(run.facts.iter().map(fact).collect()),
             judged: run.judged,
             not_judged: Lines(run.not_judged.iter().filter_map(unjudged).collect()),
-            stopped_before: words::step(scenario, trace.stopped_before),
+            never_came: words::step(scenario, trace.never_came),
         }
     }
 }

@@ -4,6 +4,7 @@ use super::Page;
 use super::notes;
 use super::paper::{Paper, Table, Tone};
 use crate::circuit::NetId;
+use crate::delay::DelayRange;
 use crate::output::words;
 use crate::scenario::{MomentKind, Place, Scenario};
 
@@ -83,7 +84,13 @@ fn steps(paper: &mut Paper, scenario: &Scenario) {
                 let step = &stimulus.steps[step as usize];
                 let sets =
                     step.set.iter().map(|(net, value)| format!("{}={}", words::net(scenario, *net), u8::from(*value)));
-                (place(scenario, &step.place), sets.collect::<Vec<_>>().join(" "))
+                let mut sets = sets.collect::<Vec<_>>().join(" ");
+                if let Some(bounce) = &step.bounce {
+                    let (least, most) = bounce.pulses;
+                    let pairs = if least == most { least.to_string() } else { format!("{least} to {most}") };
+                    sets += &format!(", bouncing {pairs} times within {}", range(scenario, &bounce.lasting));
+                }
+                (place(scenario, &step.place), sets)
             }
         };
         table.row(Tone::Plain, vec![moment.label.clone(), when, sets]);
@@ -92,29 +99,34 @@ fn steps(paper: &mut Paper, scenario: &Scenario) {
     super::more(paper, stimulus.moments.len().saturating_sub(ROWS), "check --json");
 }
 
+/// A range of times: `100 ns`, `100 to 140 ns`.
+fn range(scenario: &Scenario, range: &DelayRange) -> String {
+    let unit = scenario.unit;
+    if range.is_exact() {
+        format!("{} {unit}", range.min.decimal(unit))
+    } else {
+        format!("{} to {} {unit}", range.min.decimal(unit), range.max.decimal(unit))
+    }
+}
+
 /// When a step comes: `at 100 ns`, `100 to 140 ns after the step before`.
 fn place(scenario: &Scenario, place: &Place) -> String {
     let unit = scenario.unit;
-    let range = |range: &crate::delay::DelayRange| {
-        if range.is_exact() {
-            format!("{} {unit}", range.min.decimal(unit))
-        } else {
-            format!("{} to {} {unit}", range.min.decimal(unit), range.max.decimal(unit))
-        }
-    };
+    let range = |it: &DelayRange| range(scenario, it);
     match place {
         Place::At(it) => format!("at {}", range(it)),
         Place::After(it) => format!("{} after the step before", range(it)),
         Place::Rest(wait) if wait.fs() == 0 => "at rest".to_string(),
         Place::Rest(wait) => format!("{} {unit} after rest", wait.decimal(unit)),
-        Place::When { pattern, wait, .. } => {
+        Place::When { pattern, wait, timeout } => {
             let nets =
                 pattern.iter().map(|(net, value)| format!("{}={}", words::net(scenario, *net), u8::from(*value)));
             let nets = nets.collect::<Vec<_>>().join(" ");
+            let limit = timeout.map_or_else(String::new, |limit| format!(", for up to {} {unit}", limit.decimal(unit)));
             if wait.is_exact() && wait.min.fs() == 0 {
-                format!("when {nets}")
+                format!("when {nets}{limit}")
             } else {
-                format!("{} after {nets}", range(wait))
+                format!("{} after {nets}{limit}", range(wait))
             }
         }
     }

@@ -114,7 +114,9 @@ fn groups<'a>(asked: &Asked, report: &'a SweepReport, broken: bool) -> Vec<Group
     let rule = |subject: &Subject| {
         let question = subject.question.and_then(|number| asked.questions.get(number as usize));
         // what a step expects is its own; other rules are one rule for all steps
-        let own = question.filter(|it| matches!(it.rule, RuleKey::Expect | RuleKey::Edges)).and(subject.moment);
+        let own = question
+            .filter(|it| matches!(it.rule, RuleKey::Expect | RuleKey::Edges | RuleKey::When))
+            .and(subject.moment);
         (question.map(|it| (it.rule, it.index)), own)
     };
     let mut groups: Vec<Group<'a>> = Vec::new();

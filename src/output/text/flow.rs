@@ -238,8 +238,8 @@ fn hazards(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
         paper.item(Tone::Plain, "No static or dynamic hazard of watched nets or feedback nets.");
     }
     if !scenario.circuit.feedback().is_empty() {
-        let text = "Hazards are those of the logic while the feedback nets are as they were; glitches that their own change \
-                    makes are for the sweep to see.";
+        let text = "Hazards are those of the logic while the feedback nets are as they were; what nets do when these then \
+                    change is for the sweep to see.";
         paper.say(2, Tone::Plain, text);
     }
 }

@@ -58,11 +58,7 @@ pub(super) fn body(
         let (done, wanted) = (words::count(report.samples), words::count(report.plan.samples));
         paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run."));
     }
-    if scenario.cannot_run {
-        paper.say(2, Tone::Unsure, "This circuit cannot be run yet; see the notes.");
-    } else {
-        steps::steps(paper, scenario, report);
-    }
+    steps::steps(paper, scenario, report);
     findings::findings(paper, page, scenario, asked, report);
     conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);

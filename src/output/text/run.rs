@@ -40,8 +40,8 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
         table(&mut paper, scenario, windows);
         super::more(&mut paper, windows.len().saturating_sub(WINDOWS), "the JSON, with --json");
     }
-    if let Some(step) = words::step(scenario, report.trace.stopped_before) {
-        paper.say(2, Tone::Unsure, &format!("The run stops before step {step}, which is not analysed yet."));
+    if let Some(step) = words::step(scenario, report.trace.never_came) {
+        paper.say(2, Tone::Bad, &format!("The run ends before step {step}: what it waits for never came."));
     }
     if !report.facts.is_empty() {
         paper.heading("Found in this run, worst first");
@@ -75,7 +75,7 @@ fn table(paper: &mut Paper, scenario: &Scenario, windows: &[Window]) {
             End::Settled => (Tone::Plain, steps::state(scenario, &scenario.outputs, &window.state)),
             End::Oscillating { period, .. } => (Tone::Unsure, format!("period {}", period.rounded())),
             End::Unsettled(hit) => (Tone::Unsure, format!("reached {}", hit.words())),
-            End::Cut => (Tone::Unsure, "cut by the next step".to_string()),
+            End::Cut => (Tone::Unsure, "cut before rest".to_string()),
         };
         let early = if window.began_at_rest { "" } else { " (applied before rest)" };
         table.row(

@@ -117,7 +117,7 @@ fn lines(scenario: &Scenario, window: &WindowReport) -> Vec<Line> {
     let ends = [
         (window.oscillating, "oscillating"),
         (window.unsettled, "unsettled (limit reached)"),
-        (window.cut, "cut by the next step"),
+        (window.cut, "cut before rest"),
     ];
     lines.extend(ends.into_iter().filter(|it| it.0 > 0).map(|(draws, words)| line(Tone::Unsure, draws, words)));
     let together = window.reached.saturating_sub(window.named);

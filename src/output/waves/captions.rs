@@ -68,9 +68,9 @@ pub(super) fn notes(picture: &Picture<'_>, seen: &Seen<'_>) -> Vec<String> {
     if seen.missing {
         notes.push("Marks without a label had no room for it; tooltips and tables have the text.".to_string());
     }
-    let stopped = picture.front().and_then(|run| words::step(scenario, run.trace.stopped_before));
+    let stopped = picture.front().and_then(|run| words::step(scenario, run.trace.never_came));
     if let Some(step) = stopped {
-        notes.push(format!("The run stops before step {step}, which is not analysed yet."));
+        notes.push(format!("The run ends before step {step}: what it waits for never came."));
     }
     notes.iter().map(|note| cut_end(note, SMALL, WIDTH - 2.0 * MARGIN).unwrap_or_else(|| note.clone())).collect()
 }

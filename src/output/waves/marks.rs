@@ -109,7 +109,7 @@ fn ending(scenario: &Scenario, window: &Window) -> Ending {
         }
         (End::Cut, _) => {
             let length = window.stop.since(window.start);
-            (window.stop, "cut".to_string(), format!("not at rest when the next step came, after {}", exact(length)))
+            (window.stop, "cut".to_string(), format!("cut before rest, after {}", exact(length)))
         }
     };
     Ending { at, is_rest: window.end == End::Settled, label, title: format!("{step}: {more}") }

@@ -23,7 +23,6 @@ pub(super) struct Context<'a> {
     pub faults: Faults,
     pub notes: Vec<Said<String>>,
     pub not_analysed: Vec<Said<String>>,
-    pub cannot_run: bool,
     comparisons: Comparisons,
 }
 
@@ -37,23 +36,11 @@ pub(super) enum Least {
 
 impl<'a> Context<'a> {
     pub fn new(nets: Nets<'a>, unit: Unit, faults: Faults) -> Context<'a> {
-        Context {
-            nets,
-            unit,
-            faults,
-            notes: Vec::new(),
-            not_analysed: Vec::new(),
-            cannot_run: false,
-            comparisons: Comparisons::default(),
-        }
+        Context { nets, unit, faults, notes: Vec::new(), not_analysed: Vec::new(), comparisons: Comparisons::default() }
     }
 
     pub fn note(&mut self, mark: Mark, note: impl Into<String>) {
         self.notes.push(Said::at(note.into(), mark));
-    }
-
-    pub fn not_analysed(&mut self, mark: Mark, sentence: impl Into<String>) {
-        self.not_analysed.push(Said::at(sentence.into(), mark));
     }
 
     /// A span in the scenario's unit, for a fault.

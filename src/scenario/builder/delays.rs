@@ -243,24 +243,6 @@ fn notes(
         let wires = if count == 1 { "1 wire".to_string() } else { format!("{count} wires") };
         context.note(mark, format!("{wires}: minimum delay assumed, {part} of typical"));
     }
-    let with = |wanted: fn(&Filter) -> bool| -> Vec<GateId> {
-        let gates = (0..model.filter.len()).filter(|g| wanted(&model.filter[*g]));
-        gates.map(|g| GateId(g as u32)).collect()
-    };
-    let filters = [
-        ("reject", with(|f| matches!(f, Filter::Reject(_)))),
-        ("involution", with(|f| matches!(f, Filter::Involution(_)))),
-    ];
-    for (name, gates) in filters {
-        if let Some(first) = gates.first() {
-            let gates = names(&gates);
-            context.not_analysed(
-                mark(*first),
-                format!("filter `{name}` of {gates}: not analysed yet; no run takes place"),
-            );
-            context.cannot_run = true;
-        }
-    }
 }
 
 /// Checks groups. What has a fault is left out.

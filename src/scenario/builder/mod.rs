@@ -368,7 +368,6 @@ impl Builder {
             conditions,
             notes: in_order(context.notes),
             not_analysed: in_order(context.not_analysed),
-            cannot_run: context.cannot_run,
         })
     }
 

@@ -2,7 +2,7 @@
 
 use rustc_hash::{FxHashMap, FxHashSet};
 
-use super::context::{Context, Least, name_list};
+use super::context::{Context, Least};
 use super::delays::Checked;
 use super::said::{NewBounce, NewClock, NewPlace, NewState, NewStep, Said};
 use super::{BeginAt, Builder};
@@ -47,7 +47,6 @@ pub(super) fn check(context: &mut Context<'_>, told: &Builder, delays: &Checked)
             templates.push(template(context, said, number, &clocked, delays.default_rest));
         }
     }
-    not_analysed(context, &templates);
     let mut stimulus = Stimulus {
         initial: told.inputs.iter().map(|(_, value)| *value).collect(),
         steps: Vec::new(),
@@ -264,26 +263,6 @@ fn mark_of(place: &NewPlace, step: Mark) -> Mark {
         NewPlace::Rest(amount) => amount.mark,
         NewPlace::When { pattern, .. } => pattern.mark,
         NewPlace::Unreadable => step,
-    }
-}
-
-/// Says which steps hold what is not analysed yet.
-fn not_analysed(context: &mut Context<'_>, templates: &[Template]) {
-    let which = |wanted: fn(&Step) -> bool| -> Vec<&Step> {
-        templates.iter().map(|template| &template.step).filter(|step| wanted(step)).collect()
-    };
-    let labels = |steps: &[&Step]| name_list(steps.iter().map(|step| step.label.as_str()));
-    let waits = which(|step| matches!(step.place, Place::When { .. }));
-    if let Some(first) = waits.first() {
-        context.not_analysed(
-            first.mark,
-            format!("`when` of {}: not analysed yet; every run stops before it", labels(&waits)),
-        );
-    }
-    let bounces = which(|step| step.bounce.is_some());
-    if let Some(first) = bounces.first() {
-        let labels = labels(&bounces);
-        context.not_analysed(first.mark, format!("`bounce` of {labels}: not analysed yet; every run stops before it"));
     }
 }
 

@@ -41,7 +41,7 @@ impl Log {
     /// A line for each window and each batch.
     pub fn in_words(&self) -> String {
         let record = &self.recorder.record;
-        let mut text = format!("start {:?}\nend {} {:?}", record.start, record.end, record.stopped_before);
+        let mut text = format!("start {:?}\nend {} {:?}", record.start, record.end, record.never_came);
         for (number, window) in record.windows.iter().enumerate() {
             text += &format!("\nwindow {number}: {window:?}");
             for batch in self.batches.iter().filter(|batch| batch.window == number) {
@@ -163,6 +163,7 @@ pub fn judge(scenario: &Scenario, asked: &Asked, log: &Log) -> Said {
             RuleKey::MinPulse => slow.min_pulse(number, question),
             RuleKey::Swallowed => slow.swallowed_rule(number, question),
             RuleKey::BeforeRest => slow.before_rest(number, question),
+            RuleKey::When => slow.when(number, question),
         }
     }
     slow.never_at_rest();
@@ -221,7 +222,7 @@ impl<'a> Slow<'a> {
     }
 
     fn stopped(&self) -> bool {
-        self.log.recorder.record.stopped_before.is_some()
+        self.log.recorder.record.never_came.is_some()
     }
 
     fn step_of(&self, moment: u32) -> Option<&'a Step> {

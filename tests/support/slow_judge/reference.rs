@@ -98,7 +98,11 @@ impl Slow<'_> {
         let skew = steps.iter().any(|step| step.skew.is_some_and(|skew| skew.min != skew.max));
         let all: Vec<NetId> = steps.iter().flat_map(|step| &step.set).map(|(net, _)| *net).collect();
         let different: BTreeSet<NetId> = all.iter().copied().collect();
-        if skew && different.len() < all.len() { (different, true) } else { (BTreeSet::new(), skew) }
+        let bounces = steps.iter().any(|step| step.bounce.as_ref().is_some_and(|bounce| bounce.pulses.1 > 0));
+        match bounces || (skew && different.len() < all.len()) {
+            true => (different, true),
+            false => (BTreeSet::new(), skew),
+        }
     }
 
     fn inputs(&self, state: &[Value]) -> Vec<bool> {

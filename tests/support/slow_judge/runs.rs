@@ -14,7 +14,7 @@ impl Slow<'_> {
     pub(super) fn open(&self) -> Option<Reason> {
         match self.end() {
             End::Unsettled(_) => Some(Reason::Unsettled),
-            _ => self.stopped().then_some(Reason::NotAnalysedYet),
+            _ => self.stopped().then_some(Reason::NotReached),
         }
     }
 
@@ -135,7 +135,8 @@ impl Slow<'_> {
                             left = Some(match self.end() {
                                 End::Oscillating { .. } => Reason::Oscillating,
                                 End::Unsettled(_) => Reason::Unsettled,
-                                _ => Reason::NotAnalysedYet,
+                                End::Cut => Reason::Cut,
+                                End::Settled => Reason::NotReached,
                             });
                         }
                         continue;
@@ -211,6 +212,22 @@ impl Slow<'_> {
         match self.open() {
             Some(reason) if !broken => self.answer(number, Answer::Not(reason)),
             _ => self.answer(number, Answer::Judged { broken, slack: None }),
+        }
+    }
+
+    /// The pattern that a step waits for came, or never did, or nobody waited for it yet.
+    pub(super) fn when(&mut self, number: u32, question: &Question) {
+        let moment = question.moment.expect("the step that waits");
+        let never = self.log.recorder.record.never_came == Some(moment);
+        match self.window_of(moment) {
+            None if !never => self.answer(number, Answer::Not(Reason::NotReached)),
+            window => {
+                assert!(window.is_none() || !never, "it came and never came");
+                self.answer(number, Answer::Judged { broken: never, slack: None });
+            }
+        }
+        if never {
+            self.fact(Self::subject(Kind::NeverCame, Some(number), None, Some(moment)), true, None);
         }
     }
 

@@ -12,9 +12,10 @@ use super::{Answer, Move, Slow, short, shows};
 impl Slow<'_> {
     pub(super) fn not_reached(&mut self) {
         for (number, question) in self.asked.questions.iter().enumerate() {
-            if question.moment.is_some_and(|moment| self.window_of(moment).is_none()) {
-                let reason = if self.stopped() { Reason::NotAnalysedYet } else { Reason::NotReached };
-                self.answer(number as u32, Answer::Not(reason));
+            // whether a pattern came is judged apart
+            let waits = question.rule == RuleKey::When;
+            if !waits && question.moment.is_some_and(|moment| self.window_of(moment).is_none()) {
+                self.answer(number as u32, Answer::Not(Reason::NotReached));
             }
         }
     }
