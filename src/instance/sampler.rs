@@ -20,7 +20,8 @@
 //!
 //! What a group does with its number and each delay's own is told at [`Together`](crate::delay::Together), how a number
 //! finds its stratum in `strata.rs`: `hypercube` cuts the range of what a board draws into as many parts as there are
-//! boards in the plan, and of what a sample draws into as many as there are samples. Start bits and bounces are drawn independently.
+//! boards in the plan, and of what a sample draws into as many as there are samples. Start bits and bounces are drawn
+//! independently.
 
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
@@ -45,10 +46,10 @@ pub struct Sampler {
     tries: u64,
     board_plan: Vec<Quantity>,
     sample_plan: Vec<Quantity>,
-    bounces: Bounces,
     groups: Groups,
     /// Strata of the quantities of the plans, and of the groups; only for `hypercube`.
     strata: Option<Stratified>,
+    bounces: Bounces,
     start_place: u64,
     gates: usize,
     random_start: bool,
@@ -182,9 +183,9 @@ impl Sampler {
             tries: plan.tries,
             board_plan,
             sample_plan,
-            bounces: Bounces::new(stimulus),
             groups,
             strata,
+            bounces: Bounces::new(stimulus),
             start_place: place,
             gates: gates as usize,
             random_start: scenario.begin == Begin::Random,
