@@ -354,7 +354,7 @@ fn a_state_that_the_reference_does_not_allow_breaks_it() {
     assert_eq!(rule(&early, 1), (200, 0, vec![]));
     // an impossible state before: nothing may follow
     let never = file("expr = \"!a\"", "");
-    never.is(Call::Broken, &["\"first\" (rests at out=1, the reference allows nothing from there)"]);
+    never.is(Call::Broken, &["\"first\" (the first rests at out=1, the reference allows nothing from there)"]);
 }
 
 #[test]
@@ -457,7 +457,7 @@ fn after_power_up_the_reference_says_where_it_may_rest() {
     };
     // a random start is no state of rest to come from: either bit will do
     file("expr = \"!r & (s | q)\"").is(Call::NoFailureFound, &[]);
-    file("expr = \"s & !r\"").is(Call::Broken, &["\"power-up\" (rests at q=1, the reference allows q=0)"]);
+    file("expr = \"s & !r\"").is(Call::Broken, &["\"power-up\" (the first rests at q=1, the reference allows q=0)"]);
 }
 
 #[test]

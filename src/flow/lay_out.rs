@@ -151,6 +151,18 @@ mod tests {
     }
 
     #[test]
+    fn a_long_walk_is_covered_as_a_whole() {
+        // 512 input vectors, 9 changes each: the steps alone are more than half of a table's usual limit
+        let names: Vec<String> = (0..8).map(|i| format!("i{i}")).collect();
+        let inputs: String = names.iter().map(|name| format!("{name} = 0\n")).collect();
+        let pins = names.iter().map(|name| format!("\"{name}\"")).collect::<Vec<_>>().join(", ");
+        let scenario = walked(&format!("[inputs]\n{inputs}j = 0\n[gates]\nout = {{ xor = [{pins}, \"j\"] }}\n"));
+        assert!(scenario.stimulus.steps.len() > 4096);
+        assert_eq!(covered(&scenario), (4608, 4608));
+        assert!(scenario.not_analysed.is_empty(), "{:?}", scenario.not_analysed);
+    }
+
+    #[test]
     fn after_a_race_the_walk_finds_its_way_back() {
         // a falls: q = a & !n (n follows a late) may pulse and set the latch, or not; set or reset decides it again
         let text = r#"

@@ -355,7 +355,7 @@ pub enum FlowError {
 ///
 /// Errors: see [`FlowError`].
 pub fn flow(scenario: &Scenario, state_variables: &[NetId], control: &Control) -> Result<Flow, FlowError> {
-    let table = table::table(scenario, table::Limits::default(), control)?;
+    let table = table::table(scenario, table::Limits::of(scenario), control)?;
     let coverage = Coverage::of(&table);
     let automaton = Automaton::of(scenario, &table, state_variables);
     let found = hazards(&scenario.circuit, &scenario.watched, &table, control)?;

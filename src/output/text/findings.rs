@@ -168,7 +168,8 @@ pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, 
             paper.hang(2, 4, Tone::Bad, &format!("{} {}", i + 1, group.about(scenario, asked)));
             paper.say(4, Tone::Plain, &group.figures());
             if let Some(against) = &finding.against {
-                paper.say(4, Tone::Plain, &departure(scenario, against));
+                let first = if finding.count > 1 { "the first: " } else { "" };
+                paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
             }
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
                 paper.whole(4, &page.replay(sample, None));

@@ -127,7 +127,7 @@ fn row(scenario: &Scenario, flow: &Flow, nets: &[(&str, Vec<NetId>)], number: St
     let mut outcomes = vec![String::new(); scenario.circuit.input_count()];
     for transition in all.single.iter().filter(|it| it.from == number) {
         if let Some(input) = transition.change.single(&state.values) {
-            outcomes[input.index()] = flow_words::outcome(&transition.to);
+            outcomes[input.index()] = flow_words::short_outcome(&transition.to);
         }
     }
     row.extend(outcomes);
@@ -153,10 +153,9 @@ pub(super) fn dynamics(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
         if list.is_empty() {
             return;
         }
-        let told = list
-            .iter()
-            .take(LISTED)
-            .map(|it| format!("{}: {}", flow_words::what(scenario, &flow.table, it), flow_words::outcome(&it.to)));
+        let told = list.iter().take(LISTED).map(|it| {
+            format!("{}: {}", flow_words::what(scenario, &flow.table, it), flow_words::short_outcome(&it.to))
+        });
         let more = left(list.len(), LISTED, "transitions.csv");
         paper.item(tone, &format!("{what}: {}{more}.", told.collect::<Vec<_>>().join("; ")));
     };
