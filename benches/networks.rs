@@ -60,6 +60,7 @@ pub fn array(side: usize) -> Circuit {
     let bits = address_bits(side);
     let address = |line: &str| (0..bits).map(|bit| format!("{line}{bit}")).collect::<Vec<_>>();
     let mut drawing = Drawing::new([address("r"), address("k"), vec!["d".into(), "w".into()]].concat());
+    let all = |pins: &[String]| if pins.len() == 1 { Function::Buf } else { Function::And };
     drawing.gate("dn".into(), Function::Not, vec!["d".into()]);
     for line in ["r", "k"] {
         for bit in 0..bits {
@@ -70,11 +71,11 @@ pub fn array(side: usize) -> Circuit {
                 .map(|bit| if at >> bit & 1 == 1 { format!("{line}{bit}") } else { format!("{line}n{bit}") })
                 .collect();
             if line == "r" {
-                drawing.gate(format!("row{at}"), Function::And, pins.clone());
+                drawing.gate(format!("row{at}"), all(&pins), pins.clone());
                 pins.push("w".into());
                 drawing.gate(format!("write{at}"), Function::And, pins);
             } else {
-                drawing.gate(format!("column{at}"), Function::And, pins);
+                drawing.gate(format!("column{at}"), all(&pins), pins);
             }
         }
     }

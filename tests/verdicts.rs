@@ -280,9 +280,7 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
         ))
     };
     file("", "after = 50", "").is(Call::NoFailureFound, &[]);
-    let cases = [
-        file("", "after = 50", "[sweep]\nvary = \"per-event\""),
-    ];
+    let cases = [file("", "after = 50", "[sweep]\nvary = \"per-event\""), file("", "after = 50", "[parts]\nx = 1")];
     for case in &cases {
         case.is(Call::Undecided, &["not analysed yet"]);
         let text = text::sweep(

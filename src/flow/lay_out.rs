@@ -67,9 +67,10 @@ pub fn lay_out(mut scenario: Scenario, control: &Control) -> Result<Scenario, Fl
 
     let made = wanted - tour.left_out.len();
     let steps = tour.steps.len();
-    scenario.notes.push(format!(
-        "stimulus: {steps} steps make {made} of {wanted} single-input changes from reachable stable states"
-    ));
+    let make = if steps == 1 { "step makes" } else { "steps make" };
+    scenario
+        .notes
+        .push(format!("stimulus: {steps} {make} {made} of {wanted} single-input changes from reachable stable states"));
     if !tour.left_out.is_empty() {
         let said = |(state, input): &(StateNumber, NetId)| {
             let values = &table.states[*state as usize].values;
@@ -80,9 +81,12 @@ pub fn lay_out(mut scenario: Scenario, control: &Control) -> Result<Scenario, Fl
             0 => String::new(),
             more => format!(" and {more} more"),
         };
-        let why = match steps >= MOST_STEPS {
-            true => "too many steps",
-            false => "no sequence of changes leads there for sure, whatever the delays",
+        let why = if steps >= MOST_STEPS {
+            "too many steps"
+        } else if table.states_truncated {
+            "a limit cut the flow table, or no sequence of changes leads there for sure"
+        } else {
+            "no sequence of changes leads there for sure, whatever the delays"
         };
         let sentence = format!("stimulus: not every single change is walked ({why}): {}{more}", named.join("; "));
         scenario.not_analysed.push(sentence);

@@ -103,7 +103,7 @@ pub(super) fn single(scenario: &Scenario, table: &FlowTable, number: StateNumber
 pub(super) fn what(scenario: &Scenario, table: &FlowTable, transition: &Transition) -> String {
     let moves = from(scenario, table, transition.from, &transition.change);
     match words::step(scenario, transition.moment) {
-        Some(step) => format!("step {step} ({moves})"),
+        Some(step) => format!("{} ({moves})", words::the_step(step)),
         None => moves,
     }
 }

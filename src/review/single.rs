@@ -16,8 +16,9 @@ const VECTORS: usize = 1024;
 const VALUES: usize = 1 << 20;
 /// Stable states listed for one input vector.
 const STATES: usize = 64;
-/// Rows of the state set that are listed.
+/// Rows of the state set that are listed, and values in all of them.
 const ROWS: usize = 4096;
+const ROW_VALUES: usize = 1 << 18;
 /// Stable states looked at to find the fewest state variables.
 const LOOKED_AT: usize = 1 << 16;
 
@@ -81,7 +82,7 @@ pub fn states(scenario: &Scenario, control: &Control) -> Result<StatesReport, Re
 /// Counts and lists the states of a set, each list as far as its limit goes.
 fn list(set: &StateSet<'_>, nets: usize, report: &mut StatesReport) {
     report.count = Some(set.count().to_string());
-    let rows = set.rows(ROWS);
+    let rows = set.rows(ROWS.min(ROW_VALUES / set.variables().len().max(1)).max(1));
     (report.rows, report.rows_truncated) = (rows.rows, rows.truncated);
     let mut left = VALUES;
     let mut vectors = set.by_inputs(VECTORS, STATES);

@@ -138,3 +138,77 @@ impl<H: Fn(u32) -> bool> Clusters<'_, H> {
         })
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::control::Control;
+    use crate::statics::walk::tests::{Truth, build, truth};
+
+    /// Relations over four variables, many of them over fewer, in a fixed order.
+    fn samples() -> Vec<Vec<Truth>> {
+        let mut word = 0x0f1e_2d3c_4b5a_6978u64;
+        let mut next = || {
+            word ^= word << 13;
+            word ^= word >> 7;
+            word ^= word << 17;
+            word
+        };
+        let variable = [0xaaaau16, 0xcccc, 0xf0f0, 0xff00];
+        let mut relation = || {
+            let (a, b) = (variable[next() as usize % 4], variable[next() as usize % 4]);
+            match next() % 6 {
+                0 => a | b,
+                1 => !(a ^ b),
+                2 => a | !b,
+                3 => a & b | !a & (next() as u16),
+                4 => a,
+                _ => next() as u16 | a,
+            }
+        };
+        (0..3000).map(|case| (0..1 + case % 5).map(|_| relation()).collect()).collect()
+    }
+
+    #[test]
+    fn factors_are_the_conjunction_without_the_hidden_levels() {
+        let exists = |t: Truth, v: u32| {
+            let ones = [0xaaaau16, 0xcccc, 0xf0f0, 0xff00][v as usize];
+            t | (t & ones) >> (1 << v) | (t & !ones) << (1 << v)
+        };
+        let mut several = 0;
+        for (case, tables) in samples().into_iter().enumerate() {
+            let mut diagram = Diagram::new(&Control::default());
+            let relations: Vec<Edge> = tables.iter().map(|table| build(&mut diagram, *table)).collect();
+            let set = case as u32 % 16;
+            let hidden = |level: u32| set >> level & 1 == 1;
+            let all = tables.iter().fold(Truth::MAX, |all, table| all & table);
+            let want = (0..4).filter(|v| hidden(*v)).fold(all, exists);
+            let factors = conjunction(&mut diagram, &relations, hidden).unwrap();
+            let found = factors.iter().fold(Truth::MAX, |all, factor| all & truth(&diagram, factor.root));
+            assert_eq!(found, want, "case {case}: {tables:04x?}, hidden {set:04b}");
+            let levels: Vec<u32> = factors.iter().flat_map(|factor| factor.support.clone()).collect();
+            let different: BTreeSet<u32> = levels.iter().copied().collect();
+            assert_eq!(levels.len(), different.len(), "case {case}: factors share nothing");
+            assert!(!levels.into_iter().any(hidden), "case {case}: nothing hidden is left");
+            several += usize::from(factors.len() > 1);
+        }
+        assert!(several > 200, "some fall into factors: {several}");
+    }
+
+    #[test]
+    fn a_long_chain_grows_like_its_length() {
+        // x(k) = x(k+1) for 20,000 variables, in a bad order, all but the ends hidden: the ends are equal
+        const N: u32 = 20_000;
+        let mut diagram = Diagram::new(&Control::default());
+        let mut relations = Vec::new();
+        for k in 0..N - 1 {
+            let (a, b) = (diagram.variable(k).unwrap(), diagram.variable(k + 1).unwrap());
+            relations.push(!diagram.xor(a, b).unwrap());
+        }
+        relations.sort_by_key(|root| (diagram.level(*root) % 7, *root));
+        let factors = conjunction(&mut diagram, &relations, |level| level > 0 && level < N - 1).unwrap();
+        assert_eq!(factors.len(), 1);
+        assert_eq!(factors[0].support, [0, N - 1]);
+        assert!(diagram.len() < 20 * N as usize, "{} nodes", diagram.len());
+    }
+}

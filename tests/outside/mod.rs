@@ -7,6 +7,7 @@ mod engine;
 mod filters;
 mod flow_tables;
 mod hazards;
+mod hundreds_of_gates;
 mod large_networks;
 mod networks;
 mod random_networks;

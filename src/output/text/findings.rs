@@ -33,7 +33,7 @@ pub(super) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> St
         text += &format!(", {net}");
     }
     if let Some(step) = named.step {
-        text += &format!(", step {step}");
+        text += &format!(", {}", words::the_step(step));
     }
     text
 }
