@@ -155,7 +155,8 @@ mod tests {
             greatest: Billionths::nearest(1e300),
             mismatch: Billionths(0),
         };
-        assert_eq!(huge.draw(Marginal::Uniform, wide, 5, u64::MAX), wide.max, "no overflow");
+        let long = between(1, 1 << 60, (1 << 62) - 1);
+        assert_eq!(huge.draw(Marginal::Uniform, long, 5, u64::MAX), long.max, "cut, and no overflow");
         let tiny = Together::Scale { least: Billionths(0), greatest: Billionths(0), mismatch: Billionths(0) };
         assert_eq!(tiny.draw(Marginal::Uniform, wide, 5, 5), wide.min);
     }
