@@ -10,6 +10,7 @@ use stillgate::logic::Bits;
 use stillgate::scenario::{Begin, Bounce, Clock, Mark, Place};
 use stillgate::time::Span;
 
+use crate::support::spread::kolmogorov;
 use crate::support::world::{World, exact, fs};
 
 /// A world with a range for everything that can have one.
@@ -230,14 +231,6 @@ fn typical_least_and_greatest_cases() {
     }
     // the typical delay is the middle, rounded down
     assert_eq!(Instance::of(&scenario, &Which::Typ).delays.gate[3], [fs(2), fs(1_000_050)]);
-}
-
-/// The greatest distance of the empirical distribution of `values` (as parts of the unit interval) from the uniform one.
-fn kolmogorov(mut values: Vec<f64>) -> f64 {
-    values.sort_by(f64::total_cmp);
-    let n = values.len() as f64;
-    let distance = |(i, x): (usize, &f64)| ((i + 1) as f64 / n - x).max(x - i as f64 / n);
-    values.iter().enumerate().map(distance).fold(0.0, f64::max)
 }
 
 /// Kolmogorov-Smirnov, 1 %: reject if D > 1.628 / √n [large n; table of the test, recalled and re-computed]. Exact at 5 %

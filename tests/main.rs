@@ -2,7 +2,9 @@
 
 #![allow(clippy::unwrap_used)] // a helper that fails is a test that fails
 
+mod boards;
 mod commands;
+mod conditions;
 mod coverage;
 mod demonstrations;
 mod draws;
@@ -10,7 +12,9 @@ mod engine_agrees;
 mod engine_properties;
 mod essential;
 mod golden;
+mod groups;
 mod hands_and_partners;
+mod hypercube;
 mod judges_agree;
 mod malformed;
 mod outcomes_agree;

@@ -6,8 +6,9 @@ use std::sync::Arc;
 use rand::seq::SliceRandom;
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
+use stillgate::circuit::GateId;
 use stillgate::control::Control;
-use stillgate::delay::{DelayRange, Marginal};
+use stillgate::delay::{Billionths, DelayRange, Group, Marginal, Together};
 use stillgate::engine::Program;
 use stillgate::findings::{Asked, Kind};
 use stillgate::instance::Which;
@@ -54,8 +55,16 @@ fn random_sweeps(count: u64, kind: Worlds) -> impl Iterator<Item = (Swept, ChaCh
         }
         scenario.plan.tries = if rng.random_bool(0.4) { rng.random_range(2..=7) } else { 1 };
         scenario.plan.samples = SAMPLES;
-        if rng.random_bool(0.15) {
-            scenario.plan.draw = Marginal::Corners;
+        match rng.random_range(0..20) {
+            0..3 => scenario.plan.draw = Marginal::Corners,
+            3..6 => scenario.plan.draw = Marginal::Hypercube,
+            _ => {}
+        }
+        let gates = scenario.circuit.gate_count() as u32;
+        if gates > 1 && rng.random_bool(0.3) {
+            let how = Together::Tracking(Billionths::nearest(rng.random_range(0.0..=1.0)));
+            Arc::make_mut(&mut scenario.delays).groups =
+                vec![Group { gates: (0..gates / 2).map(GateId).collect(), how }];
         }
         let program = Program::with_rest(&scenario, &case.rest);
         let asked = Asked::of(&scenario);
@@ -107,9 +116,9 @@ fn settling_figures_of_many_different_times_keep_their_resolution() {
     let kind = Worlds { delays: Lengths::Wide, gates: (3, 6), steps: (2, 3), ..PLAIN };
     let mut coarse = 0;
     for (swept, _) in random_sweeps(90, kind) {
-        let runs = one_by_one(&swept.scenario, &swept.program, &swept.asked, 3000);
         let mut scenario = swept.scenario.clone();
         scenario.plan.samples = 3000;
+        let runs = one_by_one(&scenario, &swept.program, &swept.asked, 3000);
         let tally = run_samples(&scenario, &swept.program, &swept.asked, 0..3000, 1, &Control::default());
         let report = conclude(&scenario, &swept.asked, &tally);
         Whole { scenario: &scenario, asked: &swept.asked, runs: &runs }.check(&report, &swept.name);

@@ -280,10 +280,7 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
         ))
     };
     file("", "after = 50", "").is(Call::NoFailureFound, &[]);
-    let cases = [
-        file("", "after = 50", "[[groups]]\ngates = [\"out\"]\ntracking = 0.9"),
-        file("", "after = 50", "[sweep]\nvary = \"cycle\""),
-    ];
+    let cases = [file("", "after = 50", "[sweep]\nvary = \"per-event\""), file("", "after = 50", "[parts]\nx = 1")];
     for case in &cases {
         case.is(Call::Undecided, &["not analysed yet"]);
         let text = text::sweep(
@@ -304,7 +301,7 @@ fn what_is_not_analysed_yet_is_never_called_better_than_undecided() {
     assert_eq!((rule.judged, rule.broken), (samples, samples));
     assert_eq!(never.why_not(RuleKey::Never, "", Reason::NotReached), samples);
     // but what is broken without it is broken
-    let broken = "[[rules.never]]\nstate = { a = 0 }\n[[groups]]\ngates = [\"out\"]\ntracking = 0.9";
+    let broken = "[[rules.never]]\nstate = { a = 0 }\n[parts]\nx = 1";
     file("", "after = 50", broken).is(Call::Broken, &["never"]);
 }
 
@@ -357,7 +354,7 @@ fn a_state_that_the_reference_does_not_allow_breaks_it() {
     assert_eq!(rule(&early, 1), (200, 0, vec![]));
     // an impossible state before: nothing may follow
     let never = file("expr = \"!a\"", "");
-    never.is(Call::Broken, &["\"first\" (rests at out=1, the reference allows nothing from there)"]);
+    never.is(Call::Broken, &["\"first\" (the first rests at out=1, the reference allows nothing from there)"]);
 }
 
 #[test]
@@ -460,7 +457,7 @@ fn after_power_up_the_reference_says_where_it_may_rest() {
     };
     // a random start is no state of rest to come from: either bit will do
     file("expr = \"!r & (s | q)\"").is(Call::NoFailureFound, &[]);
-    file("expr = \"s & !r\"").is(Call::Broken, &["\"power-up\" (rests at q=1, the reference allows q=0)"]);
+    file("expr = \"s & !r\"").is(Call::Broken, &["\"power-up\" (the first rests at q=1, the reference allows q=0)"]);
 }
 
 #[test]

@@ -61,7 +61,7 @@ pub struct Draws {
     #[arg(long, value_name = "S")]
     pub seed: Option<u64>,
     /// How delays spread over their ranges, in place of the scenario's
-    #[arg(long, value_name = "KIND", value_parser = PossibleValuesParser::new(["uniform", "triangular", "normal", "corners"]))]
+    #[arg(long, value_name = "KIND", value_parser = PossibleValuesParser::new(["uniform", "triangular", "normal", "corners", "hypercube"]))]
     pub draw: Option<String>,
 }
 
@@ -92,6 +92,9 @@ pub struct Running {
     /// Which case: typ, min, max, sample:N, or an instance file
     #[arg(long, value_name = "CASE", default_value = "typ")]
     pub delays: String,
+    /// Under this condition of the scenario, in place of its own delays
+    #[arg(long, value_name = "NAME")]
+    pub condition: Option<String>,
     /// Nets to draw, in this order, separated by commas; default all that fit
     #[arg(long, value_name = "A,B,...", value_delimiter = ',')]
     pub nets: Vec<String>,

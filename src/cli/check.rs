@@ -11,7 +11,7 @@ pub fn run(arguments: &Checking) -> Result<ExitCode, Failure> {
     if arguments.input.json {
         say(&json::check(&scenario))?;
     } else if !arguments.input.quiet {
-        say(&text::check(&scenario, &page(called(&arguments.input).as_deref())))?;
+        say(&text::check(&scenario, &page(called(&arguments.input).as_deref(), "")))?;
     }
     Ok(ExitCode::SUCCESS)
 }

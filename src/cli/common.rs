@@ -93,13 +93,14 @@ fn colour(stream: &impl IsTerminal) -> bool {
     stream.is_terminal() && std::env::var_os("NO_COLOR").is_none_or(|value| value.is_empty())
 }
 
-/// How texts on standard output look: colour and width of the terminal, and how the user calls the scenario.
-pub fn page(called: Option<&str>) -> Page<'_> {
+/// How texts on standard output look: colour and width of the terminal, and how the user calls the scenario and its draws.
+pub fn page<'a>(called: Option<&'a str>, options: &'a str) -> Page<'a> {
     let terminal = std::io::stdout();
     Page {
         style: if colour(&terminal) { Style::Ansi } else { Style::Plain },
         width: console::Term::stdout().size_checked().map_or(WIDTH, |(_, columns)| usize::from(columns)),
         scenario: called,
+        options,
     }
 }
 
@@ -140,6 +141,21 @@ pub fn with_draws(loaded: Loaded, draws: &Draws) -> Scenario {
         plan.draw = draw;
     }
     scenario
+}
+
+/// The options of the draws as they were given, to be given again: ` --samples 50 --seed 7`.
+pub fn options(draws: &Draws) -> String {
+    let mut text = String::new();
+    if let Some(samples) = draws.samples {
+        text += &format!(" --samples {samples}");
+    }
+    if let Some(seed) = draws.seed {
+        text += &format!(" --seed {seed}");
+    }
+    if let Some(draw) = &draws.draw {
+        text += &format!(" --draw {draw}");
+    }
+    text
 }
 
 /// The program of a scenario whose start the reader has checked.

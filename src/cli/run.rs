@@ -4,19 +4,23 @@ use std::path::Path;
 use std::process::ExitCode;
 
 use super::args::Running;
-use super::common::{Failure, called, control, finish, folder, load, page, program, say, with_draws, write};
+use super::common::{Failure, called, control, finish, folder, load, options, page, program, say, with_draws, write};
 use crate::circuit::NetId;
+use crate::delay::Marginal;
 use crate::findings::Asked;
 use crate::instance::Which;
 use crate::output::instance::write_instance;
 use crate::output::{bundle, json, text};
 use crate::reader;
 use crate::review;
-use crate::scenario::{Scenario, nearest};
+use crate::scenario::{Condition, Scenario, nearest};
 
 pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     let input = &arguments.input;
-    let scenario = with_draws(load(input)?, &arguments.draws);
+    let mut scenario = with_draws(load(input)?, &arguments.draws);
+    if let Some(name) = &arguments.condition {
+        scenario = under(name, &scenario)?;
+    }
     let which = which(&arguments.delays, &scenario)?;
     let nets = nets(&arguments.nets, &scenario)?;
     let folder = folder(input, &arguments.folder)?;
@@ -30,7 +34,7 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     if input.json {
         say(&document)?;
     } else if !input.quiet {
-        say(&text::run(&scenario, &asked, &report, &page(called(input).as_deref())))?;
+        say(&text::run(&scenario, &asked, &report, &page(called(input).as_deref(), &options(&arguments.draws))))?;
     }
     let mut bundle = bundle::of_run(&scenario, &asked, &report, nets);
     let case = bundle::safe(&report.which.words());
@@ -56,6 +60,23 @@ fn nets(names: &[String], scenario: &Scenario) -> Result<Option<Vec<NetId>>, Fai
     Ok((!nets.is_empty()).then_some(nets))
 }
 
+/// The scenario under the condition that `--condition` names.
+fn under(name: &str, scenario: &Scenario) -> Result<Scenario, Failure> {
+    let names = || scenario.conditions.iter().map(|it| it.name.as_str());
+    match scenario.conditions.iter().find(|it| it.name == name) {
+        Some(condition) => Ok(scenario.under(condition)),
+        None if name == Condition::NOMINAL => Ok(scenario.clone()),
+        None => {
+            let remedy = match (nearest(name, names()), scenario.conditions.is_empty()) {
+                (Some(like), _) => format!("; did you mean `{like}`?"),
+                (None, true) => "; it has none".to_string(),
+                (None, false) => format!("; it has {}", names().collect::<Vec<_>>().join(", ")),
+            };
+            Err(Failure::Bad(format!("`--condition`: the scenario has no condition `{name}`{remedy}")))
+        }
+    }
+}
+
 /// The case that `--delays` names.
 fn which(text: &str, scenario: &Scenario) -> Result<Which, Failure> {
     match text {
@@ -66,9 +87,15 @@ fn which(text: &str, scenario: &Scenario) -> Result<Which, Failure> {
     }
     if let Some(number) = text.strip_prefix("sample:") {
         let number = number.parse::<u64>().ok().filter(|number| *number < 1 << 62);
-        return number.map(Which::Sample).ok_or_else(|| {
+        let number = number.ok_or_else(|| {
             Failure::Bad(format!("`--delays {text}` names no sample; write for example `--delays sample:12`"))
-        });
+        })?;
+        let samples = scenario.plan.samples;
+        if scenario.plan.draw == Marginal::Hypercube && number >= samples {
+            let message = format!("`--delays {text}`: a hypercube of {samples} draws ends with sample:{}", samples - 1);
+            return Err(Failure::Bad(message));
+        }
+        return Ok(Which::Sample(number));
     }
     let path = Path::new(text);
     if !path.exists() {

@@ -21,7 +21,7 @@ pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
     if input.json {
         say(&document)?;
     } else if !input.quiet {
-        say(&text::states(&scenario, &report, &page(called(input).as_deref())))?;
+        say(&text::states(&scenario, &report, &page(called(input).as_deref(), "")))?;
     }
     let mut bundle = bundle::of_states(&scenario, &report);
     bundle.add("states.json", document);

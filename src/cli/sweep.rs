@@ -4,7 +4,7 @@ use std::process::ExitCode;
 
 use super::args::Sweeping;
 use super::common::{
-    Failure, INTERRUPTED, called, code, control, finish, folder, load, page, program, say, with_draws, write,
+    Failure, INTERRUPTED, called, code, control, finish, folder, load, options, page, program, say, with_draws, write,
 };
 use crate::findings::Asked;
 use crate::output::{bundle, json, text};
@@ -28,7 +28,13 @@ pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     if input.json {
         say(&document)?;
     } else if !input.quiet {
-        say(&text::sweep(&scenario, &asked, &report, &verdict, &page(called(input).as_deref())))?;
+        say(&text::sweep(
+            &scenario,
+            &asked,
+            &report,
+            &verdict,
+            &page(called(input).as_deref(), &options(&arguments.draws)),
+        ))?;
     }
     let mut bundle = bundle::of_sweep(&scenario, &asked, &report);
     bundle.add("sweep.json", document);

@@ -3,11 +3,14 @@
 
 mod involution;
 mod quantile;
+mod scaled;
+mod together;
 
 use serde::{Deserialize, Serialize};
 
 pub use involution::{involution, recovered};
 pub use quantile::Marginal;
+pub use together::{Billionths, Group, Together};
 
 use crate::circuit::GateId;
 use crate::time::Span;
@@ -67,6 +70,8 @@ pub struct DelayModel {
     pub wire_one_draw: Vec<bool>,
     /// For each gate, what it does with short pulses.
     pub filter: Vec<Filter>,
+    /// Gates whose delays belong together; no gate is in two groups.
+    pub groups: Vec<Group>,
     /// Gates with a minimum that was assumed from typical, in gate order.
     pub assumed_min: Vec<GateId>,
     /// Gates that were given no delay and have one time unit, in gate order.

@@ -19,11 +19,14 @@ pub enum Marginal {
     Normal,
     /// Either min or max, by the top bit.
     Corners,
+    /// Every value of the range alike, each draw of a sweep in a part of the range of its own (Latin hypercube).
+    Hypercube,
 }
 
 impl Marginal {
     /// All of them, in the order of the documentation.
-    pub const ALL: [Marginal; 4] = [Marginal::Uniform, Marginal::Triangular, Marginal::Normal, Marginal::Corners];
+    pub const ALL: [Marginal; 5] =
+        [Marginal::Uniform, Marginal::Triangular, Marginal::Normal, Marginal::Corners, Marginal::Hypercube];
 
     /// The name in a scenario.
     pub const fn name(self) -> &'static str {
@@ -32,7 +35,14 @@ impl Marginal {
             Marginal::Triangular => "triangular",
             Marginal::Normal => "normal",
             Marginal::Corners => "corners",
+            Marginal::Hypercube => "hypercube",
         }
+    }
+
+    /// May a share of its draws have an interval? Corners stand for no part's probability, and a hypercube's draws are not
+    /// independent of each other.
+    pub const fn allows_intervals(self) -> bool {
+        !matches!(self, Marginal::Corners | Marginal::Hypercube)
     }
 
     /// The marginal of this name.
@@ -48,7 +58,7 @@ impl Marginal {
         }
         let uniform = min + ((u128::from(u) * u128::from(max - min + 1)) >> 64) as u64;
         let fs = match self {
-            Marginal::Uniform => uniform,
+            Marginal::Uniform | Marginal::Hypercube => uniform,
             Marginal::Corners => {
                 if u >> 63 == 0 {
                     min
@@ -64,7 +74,7 @@ impl Marginal {
 }
 
 /// The middle of the 2^53 cells of the open unit interval that `u` falls into.
-fn unit(u: u64) -> f64 {
+pub(super) fn unit(u: u64) -> f64 {
     ((u >> 11) as f64 + 0.5) / (1u64 << 53) as f64
 }
 
@@ -93,6 +103,11 @@ fn normal(range: DelayRange, p: f64) -> u64 {
     let z = normal_quantile((1.0 - PHI_3) + p * (2.0 * PHI_3 - 1.0));
     let side = if z < 0.0 { typ - min } else { max - typ };
     round(z.abs() / 3.0 * side as f64, typ, z < 0.0).clamp(min, max)
+}
+
+/// Φ, the standard normal distribution function.
+pub(super) fn normal_distribution(z: f64) -> f64 {
+    0.5 * libm::erfc(-z * std::f64::consts::FRAC_1_SQRT_2)
 }
 
 /// Φ⁻¹, the inverse of the standard normal distribution function, to about 1 part in 10^16.

@@ -77,7 +77,8 @@ fn follow(
 ) {
     let state = |number: StateNumber| &table.states[number as usize].values;
     let exact = matches!(transition.to, Reached::Exact { .. }) || transition.to.only().is_some();
-    if !exact {
+    // where it never comes to rest there is no end to compare
+    if !exact || transition.to.states().is_empty() {
         found.not_compared += 1;
         return;
     }
@@ -234,6 +235,23 @@ mod tests {
         let arbiter = text.replace(r#"mode = { buf = ["mode"] }"#, r#"mode = { expr = "a & !p" }"#);
         let arbiter = arbiter.replace(r#"p = { and = ["a", "mode"] }"#, r#"p = { expr = "a & !mode" }"#);
         assert_eq!(compare(&arbiter).2.choices, []);
+    }
+
+    #[test]
+    fn what_never_rests_is_not_compared() {
+        let ring = r#"
+            [inputs]
+            on = 0
+            [gates]
+            ring = { nand = ["on", "ring"] }
+            [[steps]]
+            set = { on = 1 }
+            [reference]
+            [reference.gates]
+            ring = { not = ["on"] }
+        "#;
+        let (_, _, compared) = compare(ring);
+        assert_eq!((compared.compared, compared.not_compared), (0, 2), "the step, and the same single change");
     }
 
     #[test]

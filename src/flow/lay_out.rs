@@ -67,9 +67,10 @@ pub fn lay_out(mut scenario: Scenario, control: &Control) -> Result<Scenario, Fl
 
     let made = wanted - tour.left_out.len();
     let steps = tour.steps.len();
-    scenario.notes.push(format!(
-        "stimulus: {steps} steps make {made} of {wanted} single-input changes from reachable stable states"
-    ));
+    let make = if steps == 1 { "step makes" } else { "steps make" };
+    scenario
+        .notes
+        .push(format!("stimulus: {steps} {make} {made} of {wanted} single-input changes from reachable stable states"));
     if !tour.left_out.is_empty() {
         let said = |(state, input): &(StateNumber, NetId)| {
             let values = &table.states[*state as usize].values;
@@ -80,9 +81,12 @@ pub fn lay_out(mut scenario: Scenario, control: &Control) -> Result<Scenario, Fl
             0 => String::new(),
             more => format!(" and {more} more"),
         };
-        let why = match steps >= MOST_STEPS {
-            true => "too many steps",
-            false => "no sequence of changes leads there for sure, whatever the delays",
+        let why = if steps >= MOST_STEPS {
+            "too many steps"
+        } else if table.states_truncated {
+            "a limit cut the flow table, or no sequence of changes leads there for sure"
+        } else {
+            "no sequence of changes leads there for sure, whatever the delays"
         };
         let sentence = format!("stimulus: not every single change is walked ({why}): {}{more}", named.join("; "));
         scenario.not_analysed.push(sentence);
@@ -144,6 +148,18 @@ mod tests {
         unique.sort_unstable();
         unique.dedup();
         assert_eq!(unique.len(), labels.len());
+    }
+
+    #[test]
+    fn a_long_walk_is_covered_as_a_whole() {
+        // 512 input vectors, 9 changes each: the steps alone are more than half of a table's usual limit
+        let names: Vec<String> = (0..8).map(|i| format!("i{i}")).collect();
+        let inputs: String = names.iter().map(|name| format!("{name} = 0\n")).collect();
+        let pins = names.iter().map(|name| format!("\"{name}\"")).collect::<Vec<_>>().join(", ");
+        let scenario = walked(&format!("[inputs]\n{inputs}j = 0\n[gates]\nout = {{ xor = [{pins}, \"j\"] }}\n"));
+        assert!(scenario.stimulus.steps.len() > 4096);
+        assert_eq!(covered(&scenario), (4608, 4608));
+        assert!(scenario.not_analysed.is_empty(), "{:?}", scenario.not_analysed);
     }
 
     #[test]

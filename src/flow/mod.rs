@@ -145,7 +145,7 @@ pub struct Coverage {
     pub all: u64,
     /// Of these, made by some step that surely meets the state.
     pub exercised: u64,
-    /// Made only if a race goes that way: state and input.
+    /// Made only if power-up, a race or an oscillation goes that way: state and input.
     pub perhaps: Vec<(StateNumber, NetId)>,
     /// Never made: state and input, by state, then by input.
     pub missing: Vec<(StateNumber, NetId)>,
@@ -173,7 +173,7 @@ pub struct Automaton {
 /// How outputs depend on the state, over the reachable stable states.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub enum Reading {
-    /// There are no state variables: the outputs follow the inputs alone.
+    /// There are no state variables: at rest the outputs follow the inputs alone.
     #[default]
     Combinational,
     /// The outputs are a function of the state variables.
@@ -251,7 +251,7 @@ pub struct Compared {
     pub choices: Vec<Choice>,
     /// Transitions that were compared.
     pub compared: u64,
-    /// Transitions that could not be: a budget ran out, or only a bound is known.
+    /// Transitions that could not be: a budget ran out, only a bound is known, or the circuit never comes to rest.
     pub not_compared: u64,
 }
 
@@ -355,7 +355,7 @@ pub enum FlowError {
 ///
 /// Errors: see [`FlowError`].
 pub fn flow(scenario: &Scenario, state_variables: &[NetId], control: &Control) -> Result<Flow, FlowError> {
-    let table = table::table(scenario, table::Limits::default(), control)?;
+    let table = table::table(scenario, table::Limits::of(scenario), control)?;
     let coverage = Coverage::of(&table);
     let automaton = Automaton::of(scenario, &table, state_variables);
     let found = hazards(&scenario.circuit, &scenario.watched, &table, control)?;

@@ -10,7 +10,7 @@ use super::{FlowError, FlowState, FlowTable, Reached, StateNumber, Transition};
 use crate::circuit::Circuit;
 use crate::control::Control;
 use crate::logic::{State, Value};
-use crate::scenario::{Begin, Scenario};
+use crate::scenario::{Begin, Scenario, Walk as Steps};
 use crate::statics::{Change, GaveUp, NoRest, StateSet, rest, ternary};
 
 /// Where the table is cut. Steps may take up half of everything.
@@ -33,6 +33,18 @@ pub(super) struct Limits {
 impl Default for Limits {
     fn default() -> Limits {
         Limits { transitions: 1 << 13, values: 1 << 22, effort: 1 << 24, agreeing: 64, vectors: 1024, nodes: 1 << 18 }
+    }
+}
+
+impl Limits {
+    /// The limits for a scenario: a walk over every change was laid out over a whole table, so its steps take room beside
+    /// that table.
+    pub fn of(scenario: &Scenario) -> Limits {
+        let limits = Limits::default();
+        match scenario.stimulus.walk {
+            Steps::LaidOut => Limits { transitions: 4 * limits.transitions, values: 4 * limits.values, ..limits },
+            Steps::Written | Steps::ToLayOut { .. } => limits,
+        }
     }
 }
 

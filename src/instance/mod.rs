@@ -4,7 +4,9 @@
 //! [`Instance`], so all of them can be run, drawn as a picture, and replayed.
 
 mod bounces;
+mod groups;
 mod sampler;
+mod strata;
 
 pub use sampler::{LAYOUT, Sampler};
 

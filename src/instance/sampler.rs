@@ -10,16 +10,26 @@
 //! | board | 2·gate + edge (0 fall, 1 rise) | gate delay; one draw for both edges takes place 2·gate |
 //! | board | 2·gates + 2·wire + edge | wire delay, likewise |
 //! | board | 2·(gates + wires) + 2·clock, and + 1 | clock period, time high |
+//! | board | 2^40 + group | what the delays of a group have in common |
 //! | sample | for each step: 1 + number of inputs it sets | place; skew of each input it sets |
 //! | sample | then for each clock: 1 + 2·count | first edge; jitter of each edge |
 //! | sample | then for each gate: 1 | start bit (the top bit) |
 //! | sample | 2^40, then for each input of a step that bounces: 2 + 2·(most pairs) | number of pairs; span; place of each toggle but the last |
+//! | 2^64 − 1 | place in the board's stream | key of a quantity's strata, for `hypercube` |
+//! | 2^64 − 2 | place in the sample's stream | likewise |
+//!
+//! What a group does with its number and each delay's own is told at [`Together`](crate::delay::Together), how a number
+//! finds its stratum in `strata.rs`: `hypercube` cuts the range of what a board draws into as many parts as there are
+//! boards in the plan, and of what a sample draws into as many as there are samples. Start bits and bounces are drawn
+//! independently.
 
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
 use super::Instance;
 use super::bounces::Bounces;
+use super::groups::Groups;
+use super::strata::{BOARD_KEYS, SAMPLE_KEYS, Strata};
 use crate::delay::{DelayRange, Marginal};
 use crate::logic::Bits;
 use crate::scenario::{Begin, Place, Scenario};
@@ -36,11 +46,21 @@ pub struct Sampler {
     tries: u64,
     board_plan: Vec<Quantity>,
     sample_plan: Vec<Quantity>,
+    groups: Groups,
+    /// Strata of the quantities of the plans, and of the groups; only for `hypercube`.
+    strata: Option<Stratified>,
     bounces: Bounces,
     start_place: u64,
     gates: usize,
     random_start: bool,
     board: Option<u64>,
+}
+
+#[derive(Clone, Debug)]
+struct Stratified {
+    board: Strata,
+    groups: Strata,
+    sample: Strata,
 }
 
 /// A quantity that is not exact: its place in the stream, its range, where it goes.
@@ -141,12 +161,30 @@ impl Sampler {
                 place += 1;
             }
         }
+        let gate_of = |quantity: &Quantity| match quantity.target {
+            Target::Gate { gate, .. } | Target::GateBoth(gate) => Some(gate),
+            _ => None,
+        };
+        let groups = Groups::new(&scenario.delays, board_plan.iter().map(gate_of));
+        let mut rng = ChaCha8Rng::seed_from_u64(scenario.plan.seed);
+        let plan = scenario.plan;
+        let strata = (plan.draw == Marginal::Hypercube).then(|| {
+            let places = |plan: &[Quantity]| plan.iter().map(|it| it.place).collect::<Vec<u64>>().into_iter();
+            let boards = plan.samples.div_ceil(plan.tries.max(1));
+            Stratified {
+                board: Strata::new(&mut rng, BOARD_KEYS, places(&board_plan), boards),
+                groups: Strata::new(&mut rng, BOARD_KEYS, groups.places(), boards),
+                sample: Strata::new(&mut rng, SAMPLE_KEYS, places(&sample_plan), plan.samples),
+            }
+        });
         Sampler {
-            rng: ChaCha8Rng::seed_from_u64(scenario.plan.seed),
-            draw: scenario.plan.draw,
-            tries: scenario.plan.tries,
+            rng,
+            draw: plan.draw,
+            tries: plan.tries,
             board_plan,
             sample_plan,
+            groups,
+            strata,
             bounces: Bounces::new(stimulus),
             start_place: place,
             gates: gates as usize,
@@ -167,13 +205,18 @@ impl Sampler {
         let board = self.board_of(sample);
         if self.board != Some(board) {
             self.board = Some(board);
-            let plan = std::mem::take(&mut self.board_plan);
-            self.draw_plan(2 * board, &plan, into);
-            self.board_plan = plan;
+            let (plan, mut groups) = (std::mem::take(&mut self.board_plan), std::mem::take(&mut self.groups));
+            let strata = self.strata.take();
+            self.rng.set_stream(2 * board);
+            groups.begin(&mut self.rng, strata.as_ref().map(|it| &it.groups), board);
+            let stratum = strata.as_ref().map(|it| (&it.board, board));
+            self.draw_plan(2 * board, &plan, &groups, stratum, into);
+            (self.board_plan, self.groups, self.strata) = (plan, groups, strata);
         }
-        let plan = std::mem::take(&mut self.sample_plan);
-        self.draw_plan(2 * sample + 1, &plan, into);
-        self.sample_plan = plan;
+        let (plan, strata) = (std::mem::take(&mut self.sample_plan), self.strata.take());
+        let stratum = strata.as_ref().map(|it| (&it.sample, sample));
+        self.draw_plan(2 * sample + 1, &plan, &Groups::default(), stratum, into);
+        (self.sample_plan, self.strata) = (plan, strata);
         self.bounces.draw(&mut self.rng, 2 * sample + 1, self.draw, &mut into.bounces);
         if self.random_start {
             self.fill_start(sample, &mut into.start);
@@ -189,14 +232,22 @@ impl Sampler {
         }
     }
 
-    fn draw_plan(&mut self, stream: u64, plan: &[Quantity], into: &mut Instance) {
+    /// Draws the quantities of a plan; `strata` with the number of the draw, where they are stratified.
+    fn draw_plan(
+        &mut self,
+        stream: u64,
+        plan: &[Quantity],
+        groups: &Groups,
+        strata: Option<(&Strata, u64)>,
+        into: &mut Instance,
+    ) {
         /// Up to here it is cheaper to draw and drop than to seek.
         const SKIP: u64 = 16;
         let Some(first) = plan.first() else { return };
         self.rng.set_stream(stream);
         self.rng.set_word_pos(2 * u128::from(first.place));
         let mut next = first.place;
-        for quantity in plan {
+        for (number, quantity) in plan.iter().enumerate() {
             if quantity.place - next > SKIP {
                 self.rng.set_word_pos(2 * u128::from(quantity.place));
             } else {
@@ -206,7 +257,8 @@ impl Sampler {
             }
             next = quantity.place + 1;
             let u = self.rng.next_u64();
-            let span = self.draw.quantile(quantity.range, u);
+            let u = strata.map_or(u, |(strata, draw)| strata.number(draw, number, u));
+            let span = groups.span(self.draw, number, quantity.range, u);
             match quantity.target {
                 Target::Gate { gate, edge } => into.delays.gate[gate as usize][edge as usize] = span,
                 Target::GateBoth(gate) => into.delays.gate[gate as usize] = [span, span],

@@ -98,7 +98,7 @@ pub fn of_run(scenario: &Scenario, asked: &Asked, run: &RunReport, nets: Option<
     bundle
 }
 
-/// The files of a sweep: settling times, outcomes, findings, rules.
+/// The files of a sweep: settling times, outcomes, findings, rules, conditions if there are any.
 pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::SweepReport) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("settling.svg", charts::settling(scenario, report));
@@ -106,6 +106,9 @@ pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::Sweep
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));
     bundle.add("findings.csv", tables::findings(scenario, asked, report));
     bundle.add("rules.csv", tables::rules(scenario, report));
+    if let Some(table) = tables::conditions(scenario, asked, report) {
+        bundle.add("conditions.csv", table);
+    }
     bundle
 }
 

@@ -37,6 +37,20 @@ pub(super) fn sets(scenario: &Scenario, change: &Change) -> String {
     each.collect::<Vec<_>>().join(" ")
 }
 
+/// Most states of a bound in one field of a text.
+const BOUND_STATES: usize = 6;
+
+/// The outcome as [`outcome`] has it, but of a bound only the first states.
+pub(super) fn short_outcome(reached: &Reached) -> String {
+    match reached {
+        Reached::Bound { states, .. } if reached.only().is_none() && states.len() > BOUND_STATES => {
+            let first: Vec<String> = states[..BOUND_STATES].iter().map(|number| state(*number)).collect();
+            format!("? {} or one of {} more", first.join(" or "), states.len() - BOUND_STATES)
+        }
+        _ => outcome(reached),
+    }
+}
+
 /// The outcome in one field: `S4`, `S4 or S5`, `S4 or oscillates`, `oscillates`; a bound: `? S4 or S5`, `?` if no state of
 /// the table agrees with it, `? S4 or S5 or more` if a limit cut the states.
 pub(super) fn outcome(reached: &Reached) -> String {
@@ -103,7 +117,7 @@ pub(super) fn single(scenario: &Scenario, table: &FlowTable, number: StateNumber
 pub(super) fn what(scenario: &Scenario, table: &FlowTable, transition: &Transition) -> String {
     let moves = from(scenario, table, transition.from, &transition.change);
     match words::step(scenario, transition.moment) {
-        Some(step) => format!("step {step} ({moves})"),
+        Some(step) => format!("{} ({moves})", words::the_step(step)),
         None => moves,
     }
 }

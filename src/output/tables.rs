@@ -2,8 +2,8 @@
 
 use crate::findings::{Asked, Reason};
 use crate::output::words::{self, six};
-use crate::review::departure_words;
-use crate::scenario::Scenario;
+use crate::review::{Cell, Compared, compare, departure_words};
+use crate::scenario::{Condition, Scenario};
 use crate::sweep::{SweepReport, Worst};
 use crate::time::Decimal;
 
@@ -55,13 +55,14 @@ pub fn outcomes(scenario: &Scenario, report: &SweepReport) -> String {
     })
 }
 
-/// Findings, worst first, with the keys of the JSON as columns. `worst` has two columns, one for times and one for shares
-/// of a delay. What departed from the reference has the states of its first sample, all nets, and the compared nets that
-/// the reference allows.
+/// Findings, worst first, those of each condition after those of the file's own delays, with the keys of the JSON as
+/// columns. `worst` has two columns, one for times and one for shares of a delay. What departed from the reference has the
+/// states of its first sample, all nets, and the compared nets that the reference allows.
 pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
     let unit = scenario.unit;
     write(|to| {
         to.write_record([
+            "condition",
             "kind",
             "shape",
             "rule",
@@ -76,6 +77,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
             "interval_high",
             "boards_of",
             "boards_failing",
+            "boards_interval_low",
+            "boards_interval_high",
+            "boards_mean_share",
             "boards_worst_share",
             &format!("worst [{unit}]"),
             "worst [share of the delay]",
@@ -86,7 +90,10 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
             "reference: reached",
             "reference: allowed",
         ])?;
-        for finding in &report.findings {
+        let nominal = report.findings.iter().map(|it| (Condition::NOMINAL, it));
+        let others = report.conditions.iter();
+        let others = others.flat_map(|it| it.sweep.findings.iter().map(|found| (it.condition.name.as_str(), found)));
+        for (condition, finding) in nominal.chain(others) {
             let named = words::subject(scenario, asked, &finding.subject);
             let (time, share) = match finding.worst {
                 Some(Worst::Time(span)) => (span.decimal(unit).to_string(), String::new()),
@@ -98,6 +105,7 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
             let (before, reached, allowed) =
                 against.map_or_else(Default::default, |it| (it.before.unwrap_or_default(), it.reached, it.allowed));
             to.write_record([
+                condition.to_string(),
                 named.kind.to_string(),
                 name(named.shape),
                 yes_no(finding.breaks_rule),
@@ -112,6 +120,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
                 or_empty(finding.interval.map(|it| six(it.1))),
                 or_empty(finding.boards.map(|it| it.of)),
                 or_empty(finding.boards.map(|it| it.failing)),
+                or_empty(finding.boards.and_then(|it| it.interval).map(|it| six(it.0))),
+                or_empty(finding.boards.and_then(|it| it.interval).map(|it| six(it.1))),
+                or_empty(finding.boards.map(|it| six(it.mean_share))),
                 or_empty(finding.boards.map(|it| six(it.worst_share))),
                 time,
                 share,
@@ -136,7 +147,7 @@ pub fn rules(scenario: &Scenario, report: &SweepReport) -> String {
         header.push(format!("bound [{unit}]"));
         header.extend(["judged".to_string(), "broken".to_string()]);
         header.extend(Reason::ALL.iter().map(|reason| format!("not judged: {}", reason.words())));
-        header.extend([format!("margin [{unit}]"), "margin_sample".to_string()]);
+        header.extend([format!("margin [{unit}]"), "margin_sample".to_string(), "at_most".to_string()]);
         to.write_record(&header)?;
         for rule in &report.rules {
             let question = &rule.question;
@@ -157,10 +168,66 @@ pub fn rules(scenario: &Scenario, report: &SweepReport) -> String {
             }));
             row.push(or_empty(rule.margin.map(|fs| Decimal::new(fs, unit))));
             row.push(or_empty(rule.margin_sample));
+            row.push(or_empty(rule.at_most.map(|it| six(it.share))));
             to.write_record(&row)?;
         }
         Ok(())
     })
+}
+
+/// The conditions side by side, one column each, the file's own delays first; `None` if there are none.
+///
+/// Columns: figure, what it is of (as in findings and rules), then one a condition. A share is that of the draws judged; a
+/// settling time that a cut window could make longer has `>=` before it.
+pub fn conditions(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Option<String> {
+    let unit = scenario.unit;
+    let comparison = compare(scenario, report)?;
+    let cell = |cell: &Option<Cell>| match cell {
+        None => String::new(),
+        Some(Cell::Call(call)) => call.words().to_string(),
+        Some(Cell::Count(_, 0)) => String::new(),
+        Some(Cell::Count(count, of)) => six(*count as f64 / *of as f64).to_string(),
+        Some(Cell::Margin(fs)) => Decimal::new(*fs, unit).to_string(),
+        Some(Cell::Time(time, at_least)) => format!("{}{}", if *at_least { ">=" } else { "" }, time.decimal(unit)),
+    };
+    Some(write(|to| {
+        let fixed = ["figure", "kind", "shape", "name", "pattern", "net", "step"].into_iter().map(String::from);
+        let names = comparison.columns.iter().map(|(name, scale)| format!("{name} (x {scale})"));
+        to.write_record(fixed.chain(names))?;
+        for (what, cells) in &comparison.rows {
+            let step = |moment: u32| name(words::step(scenario, Some(moment)));
+            let mut row = vec![String::new(); 7];
+            match what {
+                Compared::Verdict => row[0] = "verdict".to_string(),
+                Compared::Share(subject) => {
+                    let named = words::subject(scenario, asked, subject);
+                    row = vec![
+                        "share".to_string(),
+                        named.kind.to_string(),
+                        name(named.shape),
+                        name(named.rule_name),
+                        named.pattern.unwrap_or_default(),
+                        name(named.net),
+                        name(named.step),
+                    ];
+                }
+                Compared::Margin(number) => {
+                    row[0] = format!("margin [{unit}]");
+                    if let Some(question) = report.rules.get(*number as usize).map(|rule| &rule.question) {
+                        row[1] = question.rule.word().to_string();
+                        row[3] = name(question.name.as_deref());
+                        row[4] = or_empty(question.pattern.as_ref().map(|it| it.words(&scenario.circuit)));
+                        row[5] = name(question.net.map(|net| words::net(scenario, net)));
+                    }
+                }
+                Compared::Median(moment) => (row[0], row[6]) = (format!("settling median [{unit}]"), step(*moment)),
+                Compared::Longest(moment) => (row[0], row[6]) = (format!("settling longest [{unit}]"), step(*moment)),
+            }
+            row.extend(cells.iter().map(cell));
+            to.write_record(&row)?;
+        }
+        Ok(())
+    }))
 }
 
 /// Settling-time histogram of every step: settled windows by class, `from` up to but not including `to`.

@@ -13,6 +13,11 @@ pub(super) fn step(scenario: &Scenario, moment: Option<u32>) -> Option<&str> {
     Some(&moment.label)
 }
 
+/// A step by its label: `step upper calls`; a label that says by itself what it is (`step 4`, `power-up`) stands alone.
+pub(super) fn the_step(label: &str) -> String {
+    if label.starts_with("step ") || label == "power-up" { label.to_string() } else { format!("step {label}") }
+}
+
 /// How many steps a scenario has: clock edges are steps, power-up is none.
 pub(super) fn steps(scenario: &Scenario) -> String {
     let moments = &scenario.stimulus.moments;
@@ -132,6 +137,13 @@ pub(super) fn many(number: u64, noun: &str) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn a_step_is_not_called_a_step_twice() {
+        assert_eq!(the_step("upper calls"), "step upper calls");
+        assert_eq!((the_step("step 4"), the_step("power-up")), ("step 4".to_string(), "power-up".to_string()));
+        assert_eq!(the_step("stepping"), "step stepping");
+    }
 
     #[test]
     fn numbers_for_people() {

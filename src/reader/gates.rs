@@ -1,10 +1,10 @@
-//! `[gates]`, `[delays]`, `[[groups]]` and `[reference]`.
+//! `[gates]`, `[delays]`, `[[groups]]`, `[conditions]` and `[reference]`.
 
 use toml::de::DeTable;
 
 use super::walk::{Key, Value, Walk};
 use crate::circuit::Function;
-use crate::scenario::{Builder, Mark, NewDelay, NewFilter, NewGroup, Said};
+use crate::scenario::{Builder, Mark, NewCondition, NewDelay, NewFilter, NewGroup, Said};
 
 /// The keys of a gate that are no function.
 const GATE_KEYS: [&str; 5] = ["delay", "rise", "fall", "wires", "filter"];
@@ -243,6 +243,27 @@ pub(super) fn groups(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) 
             group.incomplete |= read.is_none();
         }
         builder.group(group);
+    }
+}
+
+pub(super) fn conditions(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
+    const HELP: &str = "write one table a condition, as in `[conditions.cold]`, then `scale = 0.8`";
+    let Some(table) = walk.table(value, HELP) else { return };
+    for (key, value) in table.iter() {
+        let name = walk.said_key(key);
+        let Some(condition) = walk.table(value, HELP) else { continue };
+        let mut scale = None;
+        let mut said = false;
+        for (key, value) in condition.iter() {
+            match key.get_ref().as_ref() {
+                "scale" => (scale, said) = (walk.decimal(value), true),
+                _ => walk.unknown_key(key, &["scale"], &format!("[conditions.{}]", name.what)),
+            }
+        }
+        if !said {
+            walk.missing(key.span(), "scale", &format!("[conditions.{}]", name.what), "0.8");
+        }
+        builder.condition(NewCondition { name, scale });
     }
 }
 

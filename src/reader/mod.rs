@@ -108,7 +108,7 @@ fn stem(name: &str) -> String {
     Path::new(name).file_stem().map_or_else(|| name.to_string(), |stem| stem.to_string_lossy().into_owned())
 }
 
-const KEYS: [&str; 16] = [
+const KEYS: [&str; 17] = [
     "title",
     "time_unit",
     "outputs",
@@ -118,6 +118,7 @@ const KEYS: [&str; 16] = [
     "gates",
     "delays",
     "groups",
+    "conditions",
     "steps",
     "stimulus",
     "clocks",
@@ -128,7 +129,7 @@ const KEYS: [&str; 16] = [
 ];
 
 /// Keys that later versions will read; until then they are named in every result.
-const RESERVED: [&str; 6] = ["cells", "parts", "split", "conditions", "padding", "plot"];
+const RESERVED: [&str; 5] = ["cells", "parts", "split", "padding", "plot"];
 
 fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) {
     for (key, value) in table.iter() {
@@ -169,6 +170,7 @@ fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) {
             "gates" => gates::gates(walk, builder, value),
             "delays" => gates::delays(walk, builder, value),
             "groups" => gates::groups(walk, builder, value),
+            "conditions" => gates::conditions(walk, builder, value),
             "steps" => steps::steps(walk, builder, value),
             "stimulus" => steps::stimulus(walk, builder, value),
             "clocks" => steps::clocks(walk, builder, value),
@@ -242,8 +244,10 @@ fn sweep(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
             }
             "draw" => draw(walk, builder, value),
             "vary" => {
-                let sentence = "`vary`: not analysed yet; each sample draws every delay once".to_string();
-                builder.not_analysed(Said::at(sentence, walk.mark(key.span())));
+                if walk.word(value, &[("per-part", false), ("per-event", true)]) == Some(true) {
+                    let sentence = "vary `per-event`: not analysed yet; each sample draws every delay once".to_string();
+                    builder.not_analysed(Said::at(sentence, walk.mark(key.span())));
+                }
             }
             _ => walk.unknown_key(key, &KEYS, "[sweep]"),
         }
@@ -251,17 +255,8 @@ fn sweep(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
 }
 
 fn draw(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
-    let known = Marginal::ALL.map(|draw| (draw.name(), Some(draw))).into_iter();
-    let words: Vec<_> = known.chain([("hypercube", None)]).collect();
-    match walk.word(value, &words) {
-        Some(Some(draw)) => {
-            builder.draw(draw);
-        }
-        Some(None) => {
-            let sentence = "draw `hypercube`: not analysed yet; draws are uniform".to_string();
-            builder.not_analysed(Said::at(sentence, walk.mark(value.span())));
-        }
-        None => {}
+    if let Some(draw) = walk.word(value, &Marginal::ALL.map(|draw| (draw.name(), draw))) {
+        builder.draw(draw);
     }
 }
 

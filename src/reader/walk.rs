@@ -319,16 +319,19 @@ impl Walk {
 
     /// One of some words.
     pub fn word<T: Copy>(&mut self, value: &Value<'_>, words: &[(&str, T)]) -> Option<T> {
-        let list = || words.iter().map(|(word, _)| format!("\"{word}\"")).collect::<Vec<_>>().join(", ");
+        let help = || {
+            let list = words.iter().map(|(word, _)| format!("\"{word}\"")).collect::<Vec<_>>().join(", ");
+            if words.len() == 1 { format!("write {list}") } else { format!("write one of {list}") }
+        };
         let DeValue::String(text) = value.get_ref() else {
-            self.wrong(value, "a word in quotes", &format!("write one of {}", list()));
+            self.wrong(value, "a word in quotes", &help());
             return None;
         };
         let found = words.iter().find(|(word, _)| word == text);
         if found.is_none() {
             let help = match nearest(text, words.iter().map(|(word, _)| *word)) {
                 Some(likely) => format!("did you mean \"{likely}\"?"),
-                None => format!("write one of {}", list()),
+                None => help(),
             };
             self.fault(value.span(), format!("`{text}` has no meaning here"), help);
         }

@@ -1,6 +1,7 @@
 //! The views put together: runs, states and sweep of one scenario, the checks of the views against each other, and the
 //! verdict. Plain data; nothing is drawn here.
 
+mod conditions;
 mod contained;
 mod departure;
 mod report;
@@ -9,6 +10,7 @@ mod verdict;
 
 use std::collections::BTreeMap;
 
+pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, compare};
 pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
@@ -22,7 +24,7 @@ use crate::flow::FlowError;
 use crate::instance::Which;
 use crate::scenario::Scenario;
 use crate::statics;
-use crate::sweep::{SweepReport, conclude, run_samples};
+use crate::sweep::{ConditionReport, SweepReport, conclude, run_samples};
 
 /// Failing cases that a review shows as pictures, worst findings first.
 const SHOWN: usize = 12;
@@ -48,8 +50,28 @@ impl From<FlowError> for ReviewError {
 }
 
 /// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
-/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows. A cancelled sweep concludes from what was complete.
+/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows. Then
+/// the same for every condition of the scenario. A cancelled sweep concludes from what was complete.
 pub fn sweep(
+    scenario: &Scenario,
+    program: &Program,
+    asked: &Asked,
+    threads: usize,
+    control: &Control,
+) -> Result<SweepReport, ReviewError> {
+    let mut report = sweep_one(scenario, program, asked, threads, control)?;
+    for condition in &scenario.conditions {
+        let under = scenario.under(condition);
+        // where a run may begin does not depend on delays
+        let program = Program::new(&under, &Control::default())
+            .map_err(|_| ReviewError::Contradiction(format!("under condition {} no start is found", condition.name)))?;
+        let sweep = sweep_one(&under, &program, asked, threads, control)?;
+        report.conditions.push(ConditionReport { condition: condition.clone(), sweep });
+    }
+    Ok(report)
+}
+
+fn sweep_one(
     scenario: &Scenario,
     program: &Program,
     asked: &Asked,

@@ -2,6 +2,7 @@
 
 use std::collections::BTreeMap;
 
+use super::conditions::{by_condition, together};
 use super::departure::departure_words;
 use super::report::{Call, RunReport, Verdict};
 use crate::circuit::NetId;
@@ -10,8 +11,13 @@ use crate::findings::{Against, Fact, Kind, Question, Reason, RuleKey, Subject};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, SweepReport};
 
-/// The verdict of a sweep.
+/// The verdict of a sweep, of all its conditions together.
 pub fn verdict(scenario: &Scenario, sweep: &SweepReport) -> Verdict {
+    together(by_condition(scenario, sweep)).unwrap_or_else(|| of_one(scenario, sweep))
+}
+
+/// The verdict of a sweep with the delays that it drew, whatever its conditions say.
+pub(super) fn of_one(scenario: &Scenario, sweep: &SweepReport) -> Verdict {
     let broken = broken(scenario, sweep);
     let open = open(scenario, sweep);
     let draws = format!("{} {}", grouped(sweep.samples), draws_word(scenario.plan.draw, sweep.samples));
@@ -43,7 +49,8 @@ pub fn with_typical(scenario: &Scenario, sweep: &SweepReport, typical: &RunRepor
     let drawn = |fact: &Fact| sweep.findings.iter().any(|it| it.subject == fact.subject && it.breaks_rule);
     let only = typical.facts.iter().filter(|fact| fact.breaks_rule && !drawn(fact)).map(|fact| {
         let rule = fact.subject.question.and_then(|q| sweep.rules.get(q as usize));
-        let what = what(scenario, &fact.subject, rule.map(|rule| &rule.question), typical.against(fact));
+        let what =
+            what(scenario, &fact.subject, rule.map(|rule| &rule.question), typical.against(fact).map(|it| (it, false)));
         format!("with typical delays, but in no draw: {what} (exactly equal delays?)")
     });
     let only: Vec<String> = only.collect();
@@ -64,6 +71,8 @@ fn draws_word(draw: Marginal, n: u64) -> &'static str {
     match (draw, n) {
         (Marginal::Corners, 1) => "draw of corners",
         (Marginal::Corners, _) => "draws of corners",
+        (Marginal::Hypercube, 1) => "draw of a Latin hypercube",
+        (Marginal::Hypercube, _) => "draws of a Latin hypercube",
         (_, 1) => "draw",
         _ => "draws",
     }
@@ -114,7 +123,12 @@ fn broken(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
 }
 
 fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -> String {
-    let what = what(scenario, &finding.subject, rule.map(|rule| &rule.question), finding.against.as_ref());
+    let what = what(
+        scenario,
+        &finding.subject,
+        rule.map(|rule| &rule.question),
+        finding.against.as_ref().map(|it| (it, finding.count > 1)),
+    );
     // a rule for the whole run may break after several steps: its share is that of the rule
     match rule.filter(|rule| rule.question.moment.is_none() && rule.broken > finding.count) {
         Some(rule) => {
@@ -125,7 +139,12 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
 }
 
 /// What was found, where, after which step.
-fn what(scenario: &Scenario, subject: &Subject, question: Option<&Question>, against: Option<&Against>) -> String {
+fn what(
+    scenario: &Scenario,
+    subject: &Subject,
+    question: Option<&Question>,
+    against: Option<(&Against, bool)>,
+) -> String {
     let circuit = &scenario.circuit;
     let what = match (question.and_then(|q| q.name.as_ref()), subject.shape) {
         (Some(name), _) => format!("\"{name}\" ({})", subject.kind.word()),
@@ -146,9 +165,11 @@ fn what(scenario: &Scenario, subject: &Subject, question: Option<&Question>, aga
         Some(moment) => format!(" after \"{}\"", scenario.stimulus.moments[moment as usize].label),
         None => String::new(),
     };
-    let against = against.map_or_else(String::new, |against| {
+    // of several draws only the first is told: others may rest elsewhere
+    let against = against.map_or_else(String::new, |(against, several)| {
         let words = departure_words(scenario, against, false);
-        format!(" (rests at {}, the reference allows {})", words.reached, words.allowed)
+        let rests = if several { "the first rests" } else { "rests" };
+        format!(" ({rests} at {}, the reference allows {})", words.reached, words.allowed)
     });
     format!("{what}{net}{step}{against}")
 }
@@ -174,6 +195,9 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
     let mut reasons = Vec::new();
     if scenario.stimulus.moments.is_empty() {
         reasons.push("there is no step and no clock, so nothing was asked of the block in motion".to_string());
+    }
+    if sweep.samples == 0 {
+        reasons.push("no draw was run".to_string());
     }
     reasons.extend(scenario.not_analysed.iter().cloned());
     let mut unsettled = Vec::new();

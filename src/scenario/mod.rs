@@ -4,6 +4,7 @@
 //! hands back every fault at once, each with the [`Mark`]s of the calls it came from.
 
 mod builder;
+mod condition;
 mod fault;
 mod rules;
 mod stimulus;
@@ -13,6 +14,7 @@ use std::sync::Arc;
 use serde::{Deserialize, Serialize};
 
 pub use builder::*;
+pub use condition::*;
 pub use fault::*;
 pub use rules::*;
 pub use stimulus::*;
@@ -52,6 +54,8 @@ pub struct Scenario {
     pub limits: Limits,
     /// The sweep.
     pub plan: Plan,
+    /// Conditions of temperature and supply, in the order of the file; each is swept as a case of its own.
+    pub conditions: Vec<Condition>,
     /// What the user should know of the scenario as it was understood, in the order of the file.
     pub notes: Vec<String>,
     /// What was read and checked but is not analysed yet, in the order of the file; each is a whole sentence. While there

@@ -2,11 +2,12 @@
 
 use std::collections::{BTreeMap, BTreeSet};
 
-use super::report::{Boards, Finding, Outcome, RuleReport, Settling, SweepReport, WindowReport, Worst};
+use super::report::{AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, WindowReport, Worst};
 use super::seen::Count;
 use super::spread::{self, Spread};
-use super::stats::clopper_pearson;
+use super::stats::{clopper_pearson, none_in};
 use super::tally::{FactTally, Passage, Tally, WindowTally};
+use super::unseen::UnseenMass;
 use crate::delay::Marginal;
 use crate::engine::Hit;
 use crate::findings::{Against, Asked, Kind, Match, Reason, RuleKey, Subject, matches, matches_any};
@@ -43,6 +44,7 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
                 not_judged,
                 margin: row.margin.map(|(slack, _)| i128::from(slack)),
                 margin_sample: row.margin.map(|(_, sample)| sample),
+                at_most: None,
             }
         })
         .collect();
@@ -68,6 +70,7 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
             worst: None,
             boards_failing: 0,
             worst_board: (0, 1),
+            on_boards: (0, 0),
         };
         if let Some(strays) = &race.critical {
             let breaks = race.breaks_rule;
@@ -86,7 +89,22 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
         let key = |f: &Finding| (!f.breaks_rule, f.subject.kind, std::cmp::Reverse(f.count), f.subject);
         key(a).cmp(&key(b))
     });
-    SweepReport { plan: scenario.plan, samples: tally.samples, windows, rules, findings }
+    for rule in &mut rules {
+        rule.at_most = judging.rule_at_most(rule);
+    }
+    let at_most = judging.at_most(&windows, &rules, &findings);
+    let (unseen, unseen_untold) = judging.unseen();
+    SweepReport {
+        plan: scenario.plan,
+        samples: tally.samples,
+        windows,
+        rules,
+        findings,
+        at_most,
+        unseen,
+        unseen_untold,
+        conditions: Vec::new(),
+    }
 }
 
 /// What the samples of one moment did from each state before, beyond the commonest.
@@ -306,6 +324,50 @@ impl Judging<'_> {
         }
     }
 
+    /// How often something happens at most that no draw showed.
+    fn never_seen(&self, judged: u64) -> Option<AtMost> {
+        let plan = &self.scenario.plan;
+        let boards = plan.tries > 1;
+        let of = match boards {
+            // boards of which every try was judged
+            true if judged < self.tally.samples => return None,
+            true => self.tally.boards,
+            false => judged,
+        };
+        let share = none_in(of, CONFIDENCE).filter(|_| plan.draw.allows_intervals())?;
+        Some(AtMost { share, of, boards })
+    }
+
+    fn rule_at_most(&self, rule: &RuleReport) -> Option<AtMost> {
+        let alone = rule.question.rule != RuleKey::CriticalRace;
+        if alone && rule.broken == 0 { self.never_seen(rule.judged) } else { None }
+    }
+
+    fn at_most(&self, windows: &[WindowReport], rules: &[RuleReport], findings: &[Finding]) -> Option<AtMost> {
+        let judged = !rules.is_empty() && rules.iter().all(|rule| rule.not_judged.is_empty());
+        let settled = windows.iter().all(|window| window.unsettled == 0);
+        let resolved = findings.iter().all(|it| !it.breaks_rule && it.subject.kind != Kind::Unresolved);
+        if judged && settled && resolved { self.never_seen(self.tally.samples) } else { None }
+    }
+
+    /// The window with most of its behaviour unseen, and how many windows have too many orders to tell.
+    fn unseen(&self) -> (Option<UnseenMass>, u64) {
+        let plan = &self.scenario.plan;
+        if plan.tries > 1 || !plan.draw.allows_intervals() {
+            return (None, 0);
+        }
+        let windows = &self.tally.windows;
+        let told = windows.iter().filter(|window| window.orders.total() > 0).count() as u64;
+        let each = windows.iter().enumerate();
+        let masses = each.filter_map(|(m, window)| UnseenMass::of(m as u32, window, told, CONFIDENCE));
+        // the greatest estimate, of equal ones the greatest bound, of equal ones the first
+        let most = masses.fold(None, |most: Option<UnseenMass>, mass| match most {
+            Some(most) if (most.estimate, most.upper) >= (mass.estimate, mass.upper) => Some(most),
+            _ => Some(mass),
+        });
+        (most, windows.iter().filter(|window| window.orders.is_truncated()).count() as u64)
+    }
+
     /// How the first sample departed from the reference.
     fn against(&self, subject: &Subject) -> Option<Against> {
         let moment = subject.moment.filter(|_| subject.kind == Kind::NotInReference)?;
@@ -325,10 +387,15 @@ impl Judging<'_> {
             count: fact.count,
             of,
             share,
-            interval: share.filter(|_| !several).and_then(|_| clopper_pearson(fact.count, of, CONFIDENCE)),
+            interval: share
+                .filter(|_| !several && plan.draw.allows_intervals())
+                .and_then(|_| clopper_pearson(fact.count, of, CONFIDENCE)),
             boards: (several && !race && !corners).then(|| Boards {
                 of: self.tally.boards,
                 failing: fact.boards_failing,
+                interval: clopper_pearson(fact.boards_failing, self.tally.boards, CONFIDENCE)
+                    .filter(|_| plan.draw.allows_intervals()),
+                mean_share: fact.on_boards.0 as f64 / fact.on_boards.1.max(1) as f64,
                 worst_share: fact.worst_board.0 as f64 / fact.worst_board.1 as f64,
             }),
             worst: fact.worst.map(|(measure, _)| Worst::of(subject.kind, measure)),

@@ -7,9 +7,14 @@ mod seen;
 mod spread;
 mod stats;
 mod tally;
+mod unseen;
 
 pub use conclude::conclude;
-pub use report::{Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport, Worst};
+pub use report::{
+    AtMost, Boards, Cause, ConditionReport, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport,
+    Worst,
+};
 pub use run::run_samples;
-pub use stats::clopper_pearson;
+pub use stats::{clopper_pearson, none_in};
 pub use tally::{Passage, Tally};
+pub use unseen::{UnseenMass, unseen_mass};

@@ -3,8 +3,10 @@
 use crate::engine::Hit;
 use crate::findings::{Against, Kind, Measure, Question, Reason, Subject};
 use crate::logic::State;
-use crate::scenario::Plan;
+use crate::scenario::{Condition, Plan};
 use crate::time::Span;
+
+use super::unseen::UnseenMass;
 
 /// The result of a sweep.
 #[derive(Clone, Debug)]
@@ -19,6 +21,36 @@ pub struct SweepReport {
     pub rules: Vec<RuleReport>,
     /// Findings, worst first: rule breakers before others, by kind, by count.
     pub findings: Vec<Finding>,
+    /// If no draw broke a rule: how often one may at most. `None` if one did, if something was not judged, and for draws of
+    /// `corners` and `hypercube`.
+    pub at_most: Option<AtMost>,
+    /// The window of whose behaviour most has not been seen yet. `None` if that cannot be told of any: with tries, for draws
+    /// of `corners` and `hypercube`, where no window led from rest to rest, or there were more orders than are kept.
+    pub unseen: Option<UnseenMass>,
+    /// For how many windows that cannot be told because there were more orders than are kept.
+    pub unseen_untold: u64,
+    /// The same draws under each condition of the scenario; empty within one.
+    pub conditions: Vec<ConditionReport>,
+}
+
+/// A sweep under one condition of temperature and supply.
+#[derive(Clone, Debug)]
+pub struct ConditionReport {
+    /// The condition.
+    pub condition: Condition,
+    /// What its sweep says.
+    pub sweep: SweepReport,
+}
+
+/// What was never seen, and how often it happens at most: an upper bound, one-sided, 95 %.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct AtMost {
+    /// Share of draws that fail, at most; of boards (failing in any of their tries) where they have several.
+    pub share: f64,
+    /// Independent draws without a failure, or boards.
+    pub of: u64,
+    /// Are they boards?
+    pub boards: bool,
 }
 
 /// What happened in the windows of one moment.
@@ -101,6 +133,9 @@ pub struct RuleReport {
     pub margin: Option<i128>,
     /// The sample of the worst slack.
     pub margin_sample: Option<u64>,
+    /// If no draw broke it: how often one may at most. `None` for races, which no draw shows alone, with tries where it was
+    /// not judged in every sample, and for draws of `corners` and `hypercube`.
+    pub at_most: Option<AtMost>,
 }
 
 /// One finding over all samples.
@@ -116,7 +151,8 @@ pub struct Finding {
     pub of: u64,
     /// count / of; `None` for `corners` draws and where nothing was judged.
     pub share: Option<f64>,
-    /// 95 % interval of the share (Clopper–Pearson, two-sided); `None` with tries and for `corners` draws.
+    /// 95 % interval of the share (Clopper–Pearson, two-sided); `None` with tries and for draws of `corners` and
+    /// `hypercube`, which are not independent.
     pub interval: Option<(f64, f64)>,
     /// By boards, where a board has several tries.
     pub boards: Option<Boards>,
@@ -139,8 +175,35 @@ pub struct Boards {
     pub of: u64,
     /// Boards that ever show it.
     pub failing: u64,
+    /// 95 % interval of the share of such boards (Clopper–Pearson, two-sided); `None` for `hypercube` draws.
+    pub interval: Option<(f64, f64)>,
+    /// The share of tries that show it on those boards, all together.
+    pub mean_share: f64,
     /// The greatest share of one board's tries.
     pub worst_share: f64,
+}
+
+/// What boards say of the cause of a finding.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Cause {
+    /// Few boards show it, and they in most of their tries: it lies in their parts.
+    Parts,
+    /// Most boards show it, but in few of their tries: it lies in the moment.
+    Moment,
+    /// Neither is clear.
+    Mixed,
+}
+
+impl Boards {
+    /// Do few boards show it always, or all boards rarely? Each is a matter of more or less than half.
+    pub fn cause(&self) -> Cause {
+        let most_boards = 2 * self.failing > self.of;
+        match (most_boards, self.mean_share > 0.5) {
+            (false, true) => Cause::Parts,
+            (true, false) => Cause::Moment,
+            _ => Cause::Mixed,
+        }
+    }
 }
 
 /// The worst value of a finding.

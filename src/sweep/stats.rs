@@ -23,6 +23,19 @@ pub fn clopper_pearson(count: u64, of: u64, confidence: f64) -> Option<(f64, f64
     Some((low, high))
 }
 
+/// What the probability of something is at most, at this confidence (0.95), one-sided, if it was seen in none of `of`
+/// independent draws: 1 − (1 − confidence)^(1/of), about 3/of ("rule of three"). `None` if `of` is 0.
+///
+/// Source: B. D. Jovanovic, P. S. Levy, "A look at the rule of three", The American Statistician 51 (1997) 137-139.
+///
+/// ```
+/// let at_most = stillgate::sweep::none_in(300, 0.95).unwrap();
+/// assert!((at_most - 0.009936).abs() < 5e-7);
+/// ```
+pub fn none_in(of: u64, confidence: f64) -> Option<f64> {
+    (of > 0).then(|| -libm::expm1(libm::log1p(-confidence) / of as f64))
+}
+
 /// The quantile of the beta distribution, by bisection on its distribution function: the library's own inverse stops at
 /// a fixed number of steps, which is too coarse for shares near 0 of many draws.
 fn quantile(a: f64, b: f64, p: f64) -> Option<f64> {

@@ -140,6 +140,8 @@ pub struct FactTally {
     pub boards_failing: u64,
     /// Samples that show it on the worst board, and the tries of that board.
     pub worst_board: (u64, u64),
+    /// Samples that show it on all complete boards, and the tries of the boards that ever show it.
+    pub on_boards: (u64, u64),
 }
 
 /// A board of which not all tries are in yet.
@@ -271,11 +273,24 @@ impl WindowTally {
 impl FactTally {
     fn new(breaks_rule: bool) -> FactTally {
         let worst_board = (0, 1);
-        FactTally { breaks_rule, count: 0, first: u64::MAX, worst: None, boards_failing: 0, worst_board }
+        FactTally {
+            breaks_rule,
+            count: 0,
+            first: u64::MAX,
+            worst: None,
+            boards_failing: 0,
+            worst_board,
+            on_boards: (0, 0),
+        }
     }
 
     fn board(&mut self, failing: u64, tries: u64) {
         self.boards_failing += 1;
+        self.on_boards = (self.on_boards.0 + failing, self.on_boards.1 + tries);
+        self.worse_board(failing, tries);
+    }
+
+    fn worse_board(&mut self, failing: u64, tries: u64) {
         let (worst, of) = self.worst_board;
         // of equal shares the longer board, so that the order of a merge cannot show
         let share = u128::from(failing) * u128::from(of);
@@ -288,11 +303,11 @@ impl FactTally {
         self.count += other.count;
         self.first = self.first.min(other.first);
         merge_worst(&mut self.worst, other.worst, |new, old| new > old);
-        let failing = self.boards_failing + other.boards_failing;
+        self.boards_failing += other.boards_failing;
+        self.on_boards = (self.on_boards.0 + other.on_boards.0, self.on_boards.1 + other.on_boards.1);
         if other.boards_failing > 0 {
-            self.board(other.worst_board.0, other.worst_board.1);
+            self.worse_board(other.worst_board.0, other.worst_board.1);
         }
-        self.boards_failing = failing;
     }
 }
 

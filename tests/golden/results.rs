@@ -6,7 +6,9 @@ use stillgate::instance::Which;
 use stillgate::logic::{Bits, State, Value};
 use stillgate::review::{Call, Review, StatesReport, Verdict};
 use stillgate::scenario::Scenario;
-use stillgate::sweep::{Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport, Worst};
+use stillgate::sweep::{
+    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, UnseenMass, WindowReport, Worst,
+};
 use stillgate::time::Span;
 
 use super::cases::{self, ns};
@@ -116,7 +118,13 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
     let mut never = finding(Kind::Never, None, 3, 9);
     never.subject.question = asked.find(RuleKey::Never, 0, None, None);
     never.worst = Some(Worst::Time(ns("0.25")));
-    never.boards = Some(Boards { of: 1_000, failing: 8, worst_share: 0.2 });
+    never.boards = Some(Boards {
+        of: 1_000,
+        failing: 8,
+        interval: Some((0.003_46, 0.015_7)),
+        mean_share: 0.112_5,
+        worst_share: 0.2,
+    });
     never.interval = None;
     let mut swallowed = finding(Kind::Swallowed, Some(cases::net(scenario, "hold_lower")), 3, 9_996);
     swallowed.breaks_rule = false;
@@ -139,6 +147,7 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
             not_judged: if i == 2 { vec![(Reason::Oscillating, 7), (Reason::Unsettled, 3)] } else { Vec::new() },
             margin: question.bound.map(|bound| i128::from(bound.fs()) - 2_345_678 * i as i128),
             margin_sample: question.bound.map(|_| 42),
+            at_most: (i == 2).then_some(AtMost { share: 0.000_299_8, of: 9_990, boards: false }),
         })
         .collect();
     SweepReport {
@@ -147,6 +156,10 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
         windows,
         rules,
         findings: vec![never, finding(Kind::CriticalRace, None, 3, 1_113), appears, glitch, late, swallowed],
+        at_most: None,
+        unseen: Some(UnseenMass { moment: 3, once: 120, of: 10_000, estimate: 0.012, upper: 0.112 }),
+        unseen_untold: 0,
+        conditions: Vec::new(),
     }
 }
 
@@ -204,5 +217,15 @@ pub fn review(scenario: &Scenario) -> Review {
 
 /// A sweep that was broken off before its first draw.
 pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
-    SweepReport { plan: scenario.plan, samples: 0, windows: Vec::new(), rules: Vec::new(), findings: Vec::new() }
+    SweepReport {
+        plan: scenario.plan,
+        samples: 0,
+        windows: Vec::new(),
+        rules: Vec::new(),
+        findings: Vec::new(),
+        at_most: None,
+        unseen: None,
+        unseen_untold: 0,
+        conditions: Vec::new(),
+    }
 }

@@ -11,4 +11,5 @@ pub mod slow_judge;
 pub mod slow_recurrence;
 pub mod slow_sweep;
 pub mod small_nets;
+pub mod spread;
 pub mod world;

@@ -9,7 +9,7 @@ use stillgate::findings::{Asked, Judge, Kind, Measure, Reason, RuleKey, Subject}
 use stillgate::instance::{Instance, Which};
 use stillgate::logic::State;
 use stillgate::scenario::{Permission, Scenario};
-use stillgate::sweep::{Boards, Finding, SweepReport, WindowReport, Worst, clopper_pearson};
+use stillgate::sweep::{AtMost, Boards, Finding, SweepReport, WindowReport, Worst, clopper_pearson};
 
 use super::heard::{Heard, HeardWindow};
 use super::slow_judge::{Answer, shows};
@@ -44,6 +44,7 @@ impl Whole<'_> {
     /// Compares a report with what the samples said.
     pub fn check(&self, report: &SweepReport, of: &str) {
         assert_eq!(report.samples, self.runs.len() as u64, "{of}");
+        self.sure(report, of);
         assert_eq!(report.windows.len(), self.scenario.stimulus.moments.len(), "{of}");
         for (moment, window) in report.windows.iter().enumerate() {
             assert_eq!(window.moment, moment as u32, "{of}");
@@ -159,6 +160,58 @@ impl Whole<'_> {
         }
     }
 
+    /// What no draw showed, and what was not seen yet.
+    fn sure(&self, report: &SweepReport, of: &str) {
+        let (plan, n) = (&self.scenario.plan, self.runs.len() as u64);
+        let independent = !matches!(plan.draw, Marginal::Corners | Marginal::Hypercube);
+        let never = |n: u64| -> Option<AtMost> {
+            let share = 1.0 - 0.05f64.powf(1.0 / n as f64);
+            (n > 0 && independent).then_some(AtMost { share, of: n, boards: plan.tries > 1 })
+        };
+        let same = |said: Option<AtMost>, wanted: Option<AtMost>, of: &str| {
+            let pair = said.zip(wanted);
+            let close =
+                pair.is_none_or(|(a, b)| (a.share - b.share).abs() < 1e-12 && (a.of, a.boards) == (b.of, b.boards));
+            assert!(said.is_some() == wanted.is_some() && close, "{of}: {said:?}, not {wanted:?}");
+        };
+        for rule in &report.rules {
+            let race = rule.question.rule == RuleKey::CriticalRace;
+            let wanted = match plan.tries {
+                _ if rule.broken > 0 || race => None,
+                1 => never(rule.judged),
+                tries if rule.judged == n => never(n.div_ceil(tries)),
+                _ => None,
+            };
+            same(rule.at_most, wanted, &format!("{of}, {rule:?}"));
+        }
+        let clean = report.findings.iter().all(|it| !it.breaks_rule && it.subject.kind != Kind::Unresolved)
+            && report.windows.iter().all(|window| window.unsettled == 0)
+            && report.rules.iter().all(|rule| rule.not_judged.is_empty())
+            && !report.rules.is_empty();
+        same(report.at_most, never(n.div_ceil(plan.tries)).filter(|_| clean), of);
+
+        // orders seen in one draw only, of the window with the greatest share of them
+        let mut most: Option<(f64, u64, u64)> = None;
+        for moment in 0..self.scenario.stimulus.moments.len() as u32 {
+            let mut orders: BTreeMap<(&State, &State, u64), u64> = BTreeMap::new();
+            for (_, window) in self.named(moment).iter().filter(|it| it.1.end == End::Settled) {
+                let Some(before) = &window.before else { continue };
+                *orders.entry((before, &window.state, window.order)).or_default() += 1;
+            }
+            let (once, all) = (orders.values().filter(|it| **it == 1).count() as u64, orders.values().sum::<u64>());
+            let estimate = once as f64 / all as f64;
+            if all > 0 && most.is_none_or(|it| estimate > it.0) {
+                most = Some((estimate, once, all));
+            }
+        }
+        let wanted = most.filter(|_| plan.tries == 1 && independent);
+        assert_eq!(report.unseen.map(|it| it.estimate), wanted.map(|it| it.0), "{of}");
+        assert_eq!(report.unseen_untold, 0, "{of}");
+        if let Some(unseen) = report.unseen {
+            assert!(unseen.upper > unseen.estimate && unseen.upper <= 1.0 || unseen.estimate == 1.0, "{of}");
+        }
+    }
+
     fn rules(&self, report: &SweepReport, of: &str) {
         assert_eq!(report.rules.len(), self.asked.questions.len(), "{of}");
         for (number, rule) in report.rules.iter().enumerate() {
@@ -233,7 +286,8 @@ impl Whole<'_> {
         assert_eq!(said.sample, Some(found.samples[0].0), "{of}");
         let corners = plan.draw == Marginal::Corners;
         assert_eq!(said.share, (!corners).then(|| count as f64 / found.of as f64), "{of}");
-        let interval = clopper_pearson(count, found.of, 0.95).filter(|_| !corners && plan.tries == 1);
+        let interval =
+            clopper_pearson(count, found.of, 0.95).filter(|_| plan.draw.allows_intervals() && plan.tries == 1);
         assert_eq!(said.interval, interval, "{of}");
         let race = matches!(said.subject.kind, Kind::CriticalRace | Kind::NonCriticalRace);
         assert_eq!(said.boards, self.boards(found).filter(|_| plan.tries > 1 && !corners && !race), "{of}");
@@ -270,10 +324,15 @@ impl Whole<'_> {
         let all: Vec<u64> = (0..self.runs.len() as u64).collect();
         let boards: Vec<&[u64]> = all.chunks(self.scenario.plan.tries as usize).collect();
         let shown = |board: &&&[u64]| board.iter().filter(|sample| samples.contains(sample)).count();
+        let failing: Vec<&&[u64]> = boards.iter().filter(|board| shown(board) > 0).collect();
         let share = |board: &&[u64]| shown(&board) as f64 / board.len() as f64;
         Some(Boards {
             of: boards.len() as u64,
-            failing: boards.iter().filter(|board| shown(board) > 0).count() as u64,
+            failing: failing.len() as u64,
+            interval: clopper_pearson(failing.len() as u64, boards.len() as u64, 0.95)
+                .filter(|_| self.scenario.plan.draw.allows_intervals()),
+            mean_share: failing.iter().map(shown).sum::<usize>() as f64
+                / failing.iter().map(|board| board.len()).sum::<usize>().max(1) as f64,
             worst_share: boards.iter().map(share).fold(0.0, f64::max),
         })
     }

@@ -168,8 +168,7 @@ impl World {
             wire: self.wires.iter().map(|(_, _, delay)| *delay).collect(),
             wire_one_draw: vec![false; self.wires.len()],
             filter: self.gates.iter().map(|gate| gate.filter).collect(),
-            assumed_min: Vec::new(),
-            no_delay: Vec::new(),
+            ..DelayModel::default()
         };
         let named = |set: &[(String, bool)]| set.iter().map(|(net, bit)| (self.net(net), *bit)).collect();
         let steps: Vec<Step> =
@@ -196,6 +195,7 @@ impl World {
             reference: None,
             limits: self.limits,
             plan: self.plan,
+            conditions: Vec::new(),
             notes: Vec::new(),
             not_analysed: Vec::new(),
         }

@@ -1,7 +1,7 @@
 //! What stands in a box, and above a column.
 
 use super::Map;
-use super::labels::{BOLD, letter};
+use super::labels::{BOLD, letter, names_are_letters};
 use crate::circuit::NetId;
 use crate::logic::Bits;
 use crate::output::ink::{BODY, SMALL};
@@ -95,9 +95,9 @@ impl Texts {
         let others = map.scenario.outputs.iter().copied();
         let others =
             others.filter(|net| !map.state_variables.contains(net) && !map.scenario.circuit.is_input(*net)).collect();
-        let lettered = |net: NetId| match with_letters {
+        let lettered = |net: NetId| match with_letters && !names_are_letters(map.scenario) {
             false => name(net),
-            true => format!("{} {}", letter(net), name(net)),
+            true => format!("{} {}", letter(map.scenario, net), name(net)),
         };
         let variables = Nets::new(map.state_variables.to_vec(), name, NAMED, BODY * BOLD);
         let outputs = Nets::new(others, name, NAMED, SMALL);

@@ -5,7 +5,7 @@ use super::arrows::{Arrow, Place};
 use super::boxes::{Nets, Texts};
 use super::choose::{Chosen, Extent};
 use super::grid::Grid;
-use super::labels::{Style, letter, steps};
+use super::labels::{Style, letter, names_are_letters, steps};
 use crate::circuit::NetId;
 use crate::output::ink::SMALL;
 use crate::output::measure::{cut_end, cut_middle, width};
@@ -129,9 +129,12 @@ pub(super) fn notes(
             chosen.single.iter().flat_map(|arrow| arrow.change.set.iter().map(|(net, _)| *net)).collect();
         inputs.sort_unstable();
         inputs.dedup();
-        let all: Vec<String> = inputs.iter().map(|net| format!("{} {}", letter(*net), short(map, *net))).collect();
+        let all: Vec<String> =
+            inputs.iter().map(|net| format!("{} {}", letter(map.scenario, *net), short(map, *net))).collect();
         let all: Vec<&str> = all.iter().map(String::as_str).collect();
-        if !all.is_empty() {
+        if !all.is_empty() && names_are_letters(map.scenario) {
+            notes.push("Inputs: ↑ 0→1, ↓ 1→0.".to_string());
+        } else if !all.is_empty() {
             notes.push(format!("Letters: {}; ↑ 0→1, ↓ 1→0.", words::some_names(&all, LISTED)));
         }
     }

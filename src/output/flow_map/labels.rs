@@ -52,7 +52,7 @@ impl Label {
                 Label { above: fit(&flow_words::moves(scenario, from, &arrow.change), ROOM), ..Label::default() }
             }
             (Style::Signs, false) => Label { number: Some(number), ..Label::default() },
-            (Style::Signs, true) => Label { above: sign(arrow, from), ..Label::default() },
+            (Style::Signs, true) => Label { above: sign(scenario, arrow, from), ..Label::default() },
         }
     }
 
@@ -110,13 +110,25 @@ pub(super) fn steps(scenario: &Scenario, arrow: &Arrow) -> String {
 }
 
 /// The sign of a single change: the letter of its input, and whether it rises.
-fn sign(arrow: &Arrow, from: &Bits) -> String {
-    let each = arrow.change.moving(from).map(|(net, bit)| format!("{}{}", letter(net), if bit { '↑' } else { '↓' }));
+fn sign(scenario: &Scenario, arrow: &Arrow, from: &Bits) -> String {
+    let each =
+        arrow.change.moving(from).map(|(net, bit)| format!("{}{}", letter(scenario, net), if bit { '↑' } else { '↓' }));
     each.collect()
 }
 
-/// The letter of an input: a to z, then aa, ab, …
-pub(super) fn letter(net: NetId) -> String {
+/// Are the names of all inputs as short as letters, so that they stand for themselves? Other letters would be mistaken
+/// for them.
+pub(super) fn names_are_letters(scenario: &Scenario) -> bool {
+    scenario.circuit.inputs().all(|net| words::net(scenario, net).len() <= 2)
+}
+
+/// The letter of an input; its name where names are that short.
+pub(super) fn letter(scenario: &Scenario, net: NetId) -> String {
+    if names_are_letters(scenario) { words::net(scenario, net).to_string() } else { numbered(net) }
+}
+
+/// a to z, then aa, ab, …
+fn numbered(net: NetId) -> String {
     let mut letters = Vec::new();
     let mut rest = u64::from(net.0) + 1;
     while rest > 0 {
@@ -133,7 +145,22 @@ mod tests {
 
     #[test]
     fn letters_of_inputs() {
-        let letters = [0, 1, 25, 26, 27, 701, 702].map(|net| letter(NetId(net)));
+        let letters = [0, 1, 25, 26, 27, 701, 702].map(|net| numbered(NetId(net)));
         assert_eq!(letters, ["a", "b", "z", "aa", "ab", "zz", "aaa"]);
+    }
+
+    #[test]
+    fn names_as_short_as_letters_stand_for_themselves() {
+        let letters = |names: [&str; 3]| {
+            let mut draft = crate::scenario::Builder::new("letters");
+            names.iter().for_each(|name| {
+                draft.input(*name, false);
+            });
+            draft.gate("out", crate::circuit::Function::And, names).delay("1");
+            let scenario = draft.finish().unwrap();
+            [0, 1, 2].map(|net| letter(&scenario, NetId(net)))
+        };
+        assert_eq!(letters(["s", "a", "b"]), ["s", "a", "b"], "not a, b and c");
+        assert_eq!(letters(["s", "a", "bus"]), ["a", "b", "c"]);
     }
 }

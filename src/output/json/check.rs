@@ -2,7 +2,7 @@
 
 use serde::Serialize;
 
-use super::parts::{Object, OneLine};
+use super::parts::{Exact, Object, OneLine};
 use crate::output::assumptions::assumptions;
 use crate::output::words;
 use crate::scenario::Scenario;
@@ -20,6 +20,7 @@ struct Check<'a> {
     steps: usize,
     moments: usize,
     feedback: OneLine<Vec<&'a str>>,
+    conditions: OneLine<Object<&'a str, Exact>>,
     notes: &'a [String],
     assumptions: Vec<String>,
     not_analysed: &'a [String],
@@ -41,6 +42,9 @@ pub fn check(scenario: &Scenario) -> String {
         steps: scenario.stimulus.steps.len(),
         moments: scenario.stimulus.moments.len(),
         feedback: OneLine(words::nets(scenario, circuit.feedback())),
+        conditions: OneLine(Object(
+            scenario.conditions.iter().map(|it| (it.name.as_str(), Exact::factor(it.scale))).collect(),
+        )),
         notes: &scenario.notes,
         assumptions: assumptions(scenario, usize::MAX),
         not_analysed: &scenario.not_analysed,

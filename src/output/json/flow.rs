@@ -82,7 +82,7 @@ struct Moves<'a> {
     race: Option<&'static str>,
     method: &'static str,
     essential: Option<bool>,
-    sure: bool,
+    sure: Option<bool>,
 }
 
 impl<'a> Moves<'a> {
@@ -102,7 +102,7 @@ impl<'a> Moves<'a> {
             method: flow_words::method(reached),
             // known only where the exact method is
             essential: flow_words::race(reached).and(transition.essential),
-            sure: transition.sure,
+            sure: transition.moment.map(|_| transition.sure),
         }
     }
 }

@@ -5,32 +5,37 @@ use serde::{Serialize, Serializer};
 use serde_json::value::RawValue;
 
 use crate::circuit::{Circuit, NetId};
+use crate::delay::Billionths;
 use crate::findings::Against;
 use crate::logic::{State, Value};
 use crate::scenario::Scenario;
 use crate::sweep::Worst;
 use crate::time::{Decimal, Span, Time, Unit};
 
-/// An exact decimal number.
-pub(super) struct Exact(Decimal);
+/// An exact decimal number, as it is written.
+pub(super) struct Exact(String);
 
 impl Exact {
     pub fn span(span: Span, unit: Unit) -> Exact {
-        Exact(span.decimal(unit))
+        Exact(span.decimal(unit).to_string())
     }
 
     pub fn time(time: Time, unit: Unit) -> Exact {
         Exact::span(time.from_start(), unit)
     }
 
+    pub fn factor(factor: Billionths) -> Exact {
+        Exact(factor.to_string())
+    }
+
     pub fn signed(fs: i128, unit: Unit) -> Exact {
-        Exact(Decimal::new(fs, unit))
+        Exact(Decimal::new(fs, unit).to_string())
     }
 }
 
 impl Serialize for Exact {
     fn serialize<S: Serializer>(&self, to: S) -> Result<S::Ok, S::Error> {
-        let digits = RawValue::from_string(self.0.to_string()).map_err(serde::ser::Error::custom)?;
+        let digits = RawValue::from_string(self.0.clone()).map_err(serde::ser::Error::custom)?;
         digits.serialize(to)
     }
 }

@@ -5,6 +5,7 @@ use serde::Serialize;
 use super::parts::{Departed, Exact, Level, Measured, Object, OneLine, state};
 use crate::findings::Asked;
 use crate::output::words::{self, six};
+use crate::review::{Verdict, by_condition};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, Settling, SweepReport, WindowReport};
 
@@ -20,7 +21,11 @@ pub(super) struct Sweep<'a> {
     windows: Vec<Window<'a>>,
     rules: Vec<Rule<'a>>,
     findings: Vec<Found<'a>>,
-    unseen_mass: Option<()>,
+    failures_at_most: Option<OneLine<AtMost>>,
+    unseen_mass: Option<OneLine<Unseen<'a>>>,
+    unseen_untold: u64,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    conditions: Option<Vec<Condition<'a>>>,
 }
 
 #[derive(Serialize)]
@@ -72,10 +77,13 @@ struct Rule<'a> {
     not_judged: OneLine<Object<&'static str, u64>>,
     margin: Option<Exact>,
     margin_sample: Option<u64>,
+    at_most: Option<f64>,
 }
 
 #[derive(Serialize)]
 struct Found<'a> {
+    #[serde(skip_serializing_if = "Option::is_none")]
+    condition: Option<&'a str>,
     kind: &'static str,
     shape: Option<&'static str>,
     rule: bool,
@@ -100,11 +108,55 @@ struct Found<'a> {
 struct Boards {
     of: u64,
     failing: u64,
+    interval: Option<[f64; 2]>,
+    mean_share: f64,
     worst_share: f64,
+}
+
+/// The sweep under one condition.
+#[derive(Serialize)]
+struct Condition<'a> {
+    name: &'a str,
+    scale: Exact,
+    verdict: &'static str,
+    sentence: String,
+    reasons: Vec<String>,
+    sweep: Sweep<'a>,
+}
+
+/// An upper bound of what no draw (or board) showed; `side` and `level` say which.
+#[derive(Serialize)]
+struct AtMost {
+    share: f64,
+    of: u64,
+    what: &'static str,
+    level: f64,
+    side: &'static str,
+}
+
+#[derive(Serialize)]
+struct Unseen<'a> {
+    estimate: f64,
+    upper: f64,
+    step: Option<&'a str>,
+    once: u64,
+    of: u64,
+    high: bool,
 }
 
 impl<'a> Sweep<'a> {
     pub fn of(scenario: &'a Scenario, asked: &'a Asked, report: &'a SweepReport, format: Option<u32>) -> Sweep<'a> {
+        let mut each = by_condition(scenario, report).into_iter().skip(1);
+        let conditions = report.conditions.iter().filter_map(|it| {
+            let Verdict { call, sentence, reasons } = each.next()?.verdict;
+            let name = it.condition.name.as_str();
+            let mut sweep = Sweep::of(scenario, asked, &it.sweep, None);
+            sweep.conditions = None;
+            sweep.findings.iter_mut().for_each(|finding| finding.condition = Some(name));
+            let scale = Exact::factor(it.condition.scale);
+            Some(Condition { name, scale, verdict: call.words(), sentence, reasons, sweep })
+        });
+        let conditions = conditions.collect();
         Sweep {
             format,
             samples: report.samples,
@@ -115,7 +167,27 @@ impl<'a> Sweep<'a> {
             windows: report.windows.iter().map(|it| window(scenario, it)).collect(),
             rules: report.rules.iter().map(|it| rule(scenario, it)).collect(),
             findings: report.findings.iter().map(|it| finding(scenario, asked, it)).collect(),
-            unseen_mass: None,
+            failures_at_most: report.at_most.map(|it| {
+                OneLine(AtMost {
+                    share: six(it.share),
+                    of: it.of,
+                    what: if it.boards { "boards" } else { "draws" },
+                    level: 0.95,
+                    side: "upper",
+                })
+            }),
+            unseen_mass: report.unseen.map(|it| {
+                OneLine(Unseen {
+                    estimate: six(it.estimate),
+                    upper: six(it.upper),
+                    step: words::step(scenario, Some(it.moment)),
+                    once: it.once,
+                    of: it.of,
+                    high: it.is_high(),
+                })
+            }),
+            unseen_untold: report.unseen_untold,
+            conditions: Some(conditions),
         }
     }
 }
@@ -171,12 +243,14 @@ fn rule<'a>(scenario: &'a Scenario, report: &'a RuleReport) -> Rule<'a> {
         not_judged: OneLine(Object(report.not_judged.iter().map(|(reason, n)| (reason.words(), *n)).collect())),
         margin: report.margin.map(|fs| Exact::signed(fs, scenario.unit)),
         margin_sample: report.margin_sample,
+        at_most: report.at_most.map(|it| six(it.share)),
     }
 }
 
 fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> Found<'a> {
     let named = words::subject(scenario, asked, &finding.subject);
     Found {
+        condition: None,
         kind: named.kind,
         shape: named.shape,
         rule: finding.breaks_rule,
@@ -188,9 +262,15 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         of: finding.of,
         share: finding.share.map(six),
         interval: finding.interval.map(|(low, high)| OneLine([six(low), six(high)])),
-        boards: finding
-            .boards
-            .map(|it| OneLine(Boards { of: it.of, failing: it.failing, worst_share: six(it.worst_share) })),
+        boards: finding.boards.map(|it| {
+            OneLine(Boards {
+                of: it.of,
+                failing: it.failing,
+                interval: it.interval.map(|(low, high)| [six(low), six(high)]),
+                mean_share: six(it.mean_share),
+                worst_share: six(it.worst_share),
+            })
+        }),
         worst: finding.worst.map(|worst| Measured::of(worst, scenario.unit)),
         tie: finding.tie.map(words::tie),
         sample: finding.sample,

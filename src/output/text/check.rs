@@ -36,6 +36,11 @@ pub fn check(scenario: &Scenario, page: &Page<'_>) -> String {
     list("Gates", &circuit.gates().map(|gate| circuit.net_of(gate)).collect::<Vec<_>>());
     list("Outputs", &scenario.outputs);
     list("Feedback nets (cut every loop)", circuit.feedback());
+    if !scenario.conditions.is_empty() {
+        let each: Vec<String> = scenario.conditions.iter().map(|it| format!("{} (x {})", it.name, it.scale)).collect();
+        let each: Vec<&str> = each.iter().map(String::as_str).collect();
+        paper.hang(2, 4, Tone::Plain, &format!("Conditions: {}", words::some_names(&each, NAMES)));
+    }
     watched(&mut paper, scenario);
     steps(&mut paper, scenario);
     notes::notes(&mut paper, scenario);

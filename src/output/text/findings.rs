@@ -6,7 +6,7 @@ use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
 use crate::output::words;
 use crate::review::departure_words;
 use crate::scenario::Scenario;
-use crate::sweep::{Finding, RuleReport, SweepReport, Tie, Worst};
+use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
 /// Most findings told in full.
 const FULL: usize = 5;
@@ -33,7 +33,7 @@ pub(super) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> St
         text += &format!(", {net}");
     }
     if let Some(step) = named.step {
-        text += &format!(", step {step}");
+        text += &format!(", {}", words::the_step(step));
     }
     text
 }
@@ -73,8 +73,17 @@ fn figures(finding: &Finding) -> String {
     }
     if let Some(boards) = finding.boards {
         let (failing, of) = (words::count(boards.failing), words::count(boards.of));
-        let worst = words::percent(boards.worst_share);
-        text += &format!("; {failing} of {of} boards, the worst in {worst} of its tries");
+        let (mean, worst) = (words::percent(boards.mean_share), words::percent(boards.worst_share));
+        text += &format!("; {failing} of {of} boards");
+        if let Some((low, high)) = boards.interval {
+            text += &format!(" (95 %: {} to {})", words::percent(low), words::percent(high));
+        }
+        text += &format!(", in {mean} of their tries, the worst in {worst}");
+        text += match boards.cause() {
+            Cause::Parts => ": it lies in their parts",
+            Cause::Moment => ": it lies in the moment of the step",
+            Cause::Mixed => "",
+        };
     }
     if let Some(value) = finding.worst {
         text += &format!("; {}", worst(finding.subject.kind, value));
@@ -159,10 +168,11 @@ pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, 
             paper.hang(2, 4, Tone::Bad, &format!("{} {}", i + 1, group.about(scenario, asked)));
             paper.say(4, Tone::Plain, &group.figures());
             if let Some(against) = &finding.against {
-                paper.say(4, Tone::Plain, &departure(scenario, against));
+                let first = if finding.count > 1 { "the first: " } else { "" };
+                paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
             }
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
-                paper.whole(4, &page.replay(sample));
+                paper.whole(4, &page.replay(sample, None));
             }
         }
         super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");

@@ -6,13 +6,14 @@ use super::paper::{Paper, Table, Tone};
 use super::steps::state;
 use crate::circuit::NetId;
 use crate::flow::{
-    Beyond, Cause, Choice, Compared, Contained, Flow, Hazard, Reached, Reading, StateNumber, Transition, TransitionRef,
+    Beyond, Cause, Choice, Compared, Contained, Flow, FlowTable, Hazard, Reached, Reading, StateNumber, Transition,
+    TransitionRef,
 };
 use crate::logic::{Bits, State};
 use crate::output::{flow_words, words};
 use crate::review::StatesReport;
 use crate::scenario::Scenario;
-use crate::statics::Race;
+use crate::statics::{Change, Race};
 
 /// Most notes of the flow table.
 const NOTES: usize = 3;
@@ -126,7 +127,7 @@ fn row(scenario: &Scenario, flow: &Flow, nets: &[(&str, Vec<NetId>)], number: St
     let mut outcomes = vec![String::new(); scenario.circuit.input_count()];
     for transition in all.single.iter().filter(|it| it.from == number) {
         if let Some(input) = transition.change.single(&state.values) {
-            outcomes[input.index()] = flow_words::outcome(&transition.to);
+            outcomes[input.index()] = flow_words::short_outcome(&transition.to);
         }
     }
     row.extend(outcomes);
@@ -136,13 +137,14 @@ fn row(scenario: &Scenario, flow: &Flow, nets: &[(&str, Vec<NetId>)], number: St
 /// Races, oscillations, bounds and essential hazards of the table.
 pub(super) fn dynamics(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     let all = || flow.table.steps.iter().chain(&flow.table.single);
-    let of = |race: Race| distinct(all().filter(|it| flow_words::race(&it.to) == Some(race)));
+    let distinct = |list: Vec<_>| distinct(&flow.table, list);
+    let of = |race: Race| distinct(all().filter(|it| flow_words::race(&it.to) == Some(race)).collect());
     let critical: Vec<&Transition> = of(Race::Critical);
     let alone = |to: &Reached| matches!(to, Reached::Exact { states, cycles: 1.., .. } if states.is_empty());
-    let endless: Vec<&Transition> = distinct(all().filter(|it| alone(&it.to)));
+    let endless: Vec<&Transition> = distinct(all().filter(|it| alone(&it.to)).collect());
     let bound = |to: &Reached| matches!(to, Reached::Bound { .. }) && to.only().is_none();
-    let unknown: Vec<&Transition> = distinct(all().filter(|it| bound(&it.to)));
-    let essential: Vec<&Transition> = distinct(all().filter(|it| it.essential == Some(true)));
+    let unknown: Vec<&Transition> = distinct(all().filter(|it| bound(&it.to)).collect());
+    let essential: Vec<&Transition> = distinct(all().filter(|it| it.essential == Some(true)).collect());
     if all().next().is_none() {
         return;
     }
@@ -151,10 +153,9 @@ pub(super) fn dynamics(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
         if list.is_empty() {
             return;
         }
-        let told = list
-            .iter()
-            .take(LISTED)
-            .map(|it| format!("{} to {}", flow_words::what(scenario, &flow.table, it), flow_words::outcome(&it.to)));
+        let told = list.iter().take(LISTED).map(|it| {
+            format!("{}: {}", flow_words::what(scenario, &flow.table, it), flow_words::short_outcome(&it.to))
+        });
         let more = left(list.len(), LISTED, "transitions.csv");
         paper.item(tone, &format!("{what}: {}{more}.", told.collect::<Vec<_>>().join("; ")));
     };
@@ -168,7 +169,8 @@ pub(super) fn dynamics(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
             let cut =
                 if flow.table.states_truncated || flow.table.steps_truncated { ", as far as looked at" } else { "" };
             let what = if exact { "No race and no oscillation" } else { "Every change has one outcome" };
-            paper.item(Tone::Plain, &format!("{what}, whatever the delays{cut}."));
+            let how = if exact { "" } else { " (by ternary simulation in whole or in part, which tells no races)" };
+            paper.item(Tone::Plain, &format!("{what}, whatever the delays{how}{cut}."));
         }
         (_, 0) => {}
         (_, many) => {
@@ -189,16 +191,26 @@ pub(super) fn dynamics(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
 }
 
 /// Transitions without those that repeat an earlier one under another label.
-fn distinct<'a>(all: impl Iterator<Item = &'a Transition>) -> Vec<&'a Transition> {
+fn distinct<'a>(table: &FlowTable, all: Vec<&'a Transition>) -> Vec<&'a Transition> {
     let mut seen = FxHashSet::default();
-    all.filter(|it| seen.insert((it.from, &it.change.set))).collect()
+    let mut new = |it: &Transition| {
+        let moved = moved(table, it.from, &it.change);
+        let apart = it.change.apart && moved.len() > 1;
+        seen.insert((it.from, moved, apart))
+    };
+    all.into_iter().filter(|it| new(it)).collect()
+}
+
+/// The inputs that move, with their new values: a step may also set one that has its value already.
+fn moved(table: &FlowTable, from: StateNumber, change: &Change) -> Vec<(NetId, bool)> {
+    change.moving(flow_words::values(table, from)).collect()
 }
 
 /// Hazards of one net that one sentence tells: alike in shape, cause and cure.
 struct Group<'a> {
     first: &'a Hazard,
     /// The changes that have it: a step that changes one input is in the table of single inputs as well.
-    changes: FxHashSet<&'a [(NetId, bool)]>,
+    changes: FxHashSet<Vec<(NetId, bool)>>,
 }
 
 /// Groups in the order of their first hazards: those of steps first.
@@ -211,7 +223,7 @@ fn groups(flow: &Flow) -> Vec<Group<'_>> {
         if group == groups.len() {
             groups.push(Group { first: hazard, changes: FxHashSet::default() });
         }
-        groups[group].changes.insert(&hazard.change.set);
+        groups[group].changes.insert(moved(&flow.table, hazard.from, &hazard.change));
     }
     groups
 }
@@ -227,9 +239,9 @@ fn hazards(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
         paper.item(Tone::Unsure, "A limit cut the search for hazards: there may be more, or cures that are not told.");
     }
     if flow.hazards_not_judged > 0 {
-        let times = words::many(flow.hazards_not_judged, "time");
+        let cases = words::many(flow.hazards_not_judged, "case");
         let text = format!(
-            "Not judged for hazards: {times} a net and a change of a state; too many inputs move at once, or too many \
+            "Not judged for hazards: {cases} of a net and a change from a state; too many inputs move at once, or too many \
              changes are possible."
         );
         paper.item(Tone::Unsure, &text);
@@ -253,7 +265,7 @@ fn of_hazard(scenario: &Scenario, flow: &Flow, group: &Group<'_>) -> String {
     text += &format!(" hazard ({cause}) of {net}: ");
     let from = flow_words::from(scenario, &flow.table, hazard.from, &hazard.change);
     text += &match words::step(scenario, hazard.moment) {
-        Some(step) => format!("step {step} ({from})"),
+        Some(step) => format!("{} ({from})", words::the_step(step)),
         None => from,
     };
     if hazard.states > 1 {
@@ -282,7 +294,8 @@ fn in_short(scenario: &Scenario, flow: &Flow) -> String {
     if nets.is_empty() {
         return format!("no hazard{open}");
     }
-    let changes: FxHashSet<_> = flow.hazards.iter().map(|hazard| (hazard.net, &hazard.change.set)).collect();
+    let changes: FxHashSet<_> =
+        flow.hazards.iter().map(|it| (it.net, moved(&flow.table, it.from, &it.change))).collect();
     let names = words::some_names(&words::nets(scenario, &nets), SHORT);
     format!("hazards of {names} in {}{open}", words::many(changes.len() as u64, "change"))
 }
@@ -300,7 +313,10 @@ pub(super) fn covered(flow: &Flow) -> String {
     let (exercised, all) = (words::count(coverage.exercised), words::many(coverage.all, "single-input change"));
     let perhaps = match coverage.perhaps.len() {
         0 => String::new(),
-        many => format!(", and {} more if a race goes that way", words::count(many as u64)),
+        many => {
+            let what = if flow.table.start.len() > 1 { "power-up or a race" } else { "a race" };
+            format!(", and {} more if {what} goes that way", words::count(many as u64))
+        }
     };
     let cut = if coverage.truncated { " of the part of the table that was looked at" } else { "" };
     format!("Steps exercise {exercised} of {all}{cut}{perhaps}")
@@ -324,7 +340,7 @@ pub(super) fn reading(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     paper.item(if missing.is_empty() { Tone::Plain } else { Tone::Unsure }, &text);
     let automaton = &flow.automaton;
     let reading = match automaton.reading {
-        Reading::Combinational => "No memory: the outputs follow the inputs alone.".to_string(),
+        Reading::Combinational => "No memory: at rest the outputs follow the inputs alone.".to_string(),
         Reading::Moore => "Moore: the outputs are a function of the state variables alone.".to_string(),
         Reading::Mealy(one, other) => format!(
             "Mealy: the outputs depend on the inputs as well; {} and {} agree in the state variables and differ in an output.",
@@ -443,8 +459,9 @@ pub(super) fn short(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
         return;
     }
     let all = || table.steps.iter().chain(&table.single);
-    let critical = distinct(all().filter(|it| flow_words::race(&it.to) == Some(Race::Critical))).len();
-    let essential = distinct(all().filter(|it| it.essential == Some(true))).len();
+    let critical =
+        distinct(&flow.table, all().filter(|it| flow_words::race(&it.to) == Some(Race::Critical)).collect()).len();
+    let essential = distinct(&flow.table, all().filter(|it| it.essential == Some(true)).collect()).len();
     let text = format!(
         "Without delays (see states): {}. On the table: {}, {}, {}.",
         covered(flow).replacen('S', "s", 1),

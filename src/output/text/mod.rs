@@ -4,6 +4,7 @@
 //! to words that say the same. A text about a sweep never says more than "no failure found".
 
 mod check;
+mod conditions;
 mod findings;
 mod flow;
 mod notes;
@@ -13,6 +14,7 @@ mod rules;
 mod run;
 mod states;
 mod steps;
+mod sure;
 mod sweep;
 
 pub use check::check;
@@ -31,11 +33,13 @@ pub struct Page<'a> {
     pub width: usize,
     /// The scenario as the user named it, for commands that replay a case; `None` for the demonstration.
     pub scenario: Option<&'a str>,
+    /// Options of the draws that the user gave, for the same commands: ` --seed 7`; else empty.
+    pub options: &'a str,
 }
 
 impl Default for Page<'_> {
     fn default() -> Self {
-        Page { style: Style::Plain, width: 100, scenario: None }
+        Page { style: Style::Plain, width: 100, scenario: None, options: "" }
     }
 }
 
@@ -44,18 +48,19 @@ impl Page<'_> {
         paper::Paper::new(self.style, self.width)
     }
 
-    /// The command that replays a sample.
-    fn replay(&self, sample: u64) -> String {
-        let scenario = match self.scenario {
-            Some(name)
-                if name.chars().any(|letter| letter.is_whitespace() || matches!(letter, '\'' | '"' | '&' | '$')) =>
-            {
-                format!(" '{}'", name.replace('\'', "'\\''"))
-            }
-            Some(name) => format!(" {name}"),
-            None => String::new(),
-        };
-        format!("stillgate run{scenario} --delays sample:{sample}")
+    /// The command that replays a sample, under a condition if one is named.
+    fn replay(&self, sample: u64, condition: Option<&str>) -> String {
+        let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
+        let condition = condition.map_or_else(String::new, |name| format!(" --condition {}", in_a_shell(name)));
+        format!("stillgate run{scenario}{}{condition} --delays sample:{sample}", self.options)
+    }
+}
+
+/// A word as it is written on a command line.
+fn in_a_shell(word: &str) -> String {
+    match word.chars().any(|letter| letter.is_whitespace() || matches!(letter, '\'' | '"' | '&' | '$')) {
+        true => format!("'{}'", word.replace('\'', "'\\''")),
+        false => word.to_string(),
     }
 }
 

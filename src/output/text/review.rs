@@ -2,7 +2,7 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use super::{findings, flow, notes, rules, steps};
+use super::{conditions, findings, flow, notes, rules, steps, sure};
 use crate::output::words;
 use crate::review::{Call, Review, Verdict};
 use crate::scenario::Scenario;
@@ -60,7 +60,9 @@ pub(super) fn body(
     }
     steps::steps(paper, scenario, report);
     findings::findings(paper, page, scenario, asked, report);
+    conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
+    sure::sure(paper, report);
     rules::not_judged(paper, scenario, report);
     rules::margins(paper, scenario, report);
 }

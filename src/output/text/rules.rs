@@ -23,7 +23,7 @@ pub(super) fn about(scenario: &Scenario, question: &Question, with_step: bool) -
         text += &format!(", {}", words::net(scenario, net));
     }
     if let Some(step) = words::step(scenario, question.moment).filter(|_| with_step) {
-        text += &format!(", step {step}");
+        text += &format!(", {}", words::the_step(step));
     }
     text
 }

@@ -20,7 +20,10 @@ const NAMES: usize = 12;
 pub fn states(scenario: &Scenario, report: &StatesReport, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     let (tone, count) = match &report.count {
-        Some(count) => (Tone::Strong, format!("{count} stable states")),
+        Some(count) => {
+            let plural = if count == "1" { "" } else { "s" };
+            (Tone::Strong, format!("{count} stable state{plural}"))
+        }
         None => (Tone::Unsure, "stable states were not counted: the budget ran out".to_string()),
     };
     paper.say(0, tone, &format!("{}: {count}.", scenario.title));

@@ -160,7 +160,7 @@ fn spot(scenario: &Scenario, asked: &Asked, run: &RunReport, fact: &Fact) -> Opt
     title.extend(named.rule_name.map(|name| format!("“{name}”")));
     title.extend(named.pattern);
     title.extend(named.net.map(|net| format!("net {net}")));
-    title.extend(named.step.map(|step| format!("step {step}")));
+    title.extend(named.step.map(words::the_step));
     let unit = scenario.unit;
     let time = |at: Time| at.from_start().decimal(unit);
     title.push(format!("from {} to {} {unit}", time(from), time(to)));

@@ -43,10 +43,6 @@ impl<'a> Context<'a> {
         self.notes.push(Said::at(note.into(), mark));
     }
 
-    pub fn not_analysed(&mut self, mark: Mark, sentence: impl Into<String>) {
-        self.not_analysed.push(Said::at(sentence.into(), mark));
-    }
-
     /// A span in the scenario's unit, for a fault.
     pub fn show(&self, span: Span) -> String {
         format!("{} {}", span.decimal(self.unit), self.unit)

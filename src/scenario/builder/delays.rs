@@ -7,7 +7,7 @@ use super::circuit::Network;
 use super::context::{Context, Fraction, Least, name_list};
 use super::said::{NewDelay, NewFilter, NewGroup, NewRange, Said};
 use crate::circuit::{Function, GateId};
-use crate::delay::{DelayModel, DelayRange, Filter};
+use crate::delay::{Billionths, DelayModel, DelayRange, Filter, Group, Together};
 use crate::scenario::{Fault, Mark, nearest};
 use crate::time::Span;
 
@@ -245,10 +245,12 @@ fn notes(
     }
 }
 
-/// Checks groups, which nothing uses yet.
-pub(super) fn groups(context: &mut Context<'_>, groups: &[NewGroup]) {
+/// Checks groups. What has a fault is left out.
+pub(super) fn groups(context: &mut Context<'_>, groups: &[NewGroup]) -> Vec<Group> {
     let mut owner: FxHashMap<u32, (usize, Mark)> = FxHashMap::default();
+    let mut checked = Vec::with_capacity(groups.len());
     for (number, group) in groups.iter().enumerate() {
+        let mut gates = Vec::with_capacity(group.gates.len());
         for said in &group.gates {
             let Some(net) = context.gate(said, "groups hold gates: inputs have no delay") else { continue };
             match owner.insert(net.0, (number, said.mark)) {
@@ -261,20 +263,18 @@ pub(super) fn groups(context: &mut Context<'_>, groups: &[NewGroup]) {
                     );
                     context.faults.push(fault.related(first, "first here"));
                 }
-                None => {}
+                None => gates.push(GateId(net.0 - context.nets.inputs as u32)),
             }
         }
         if group.gates.is_empty() && !group.incomplete {
             context.faults.add(group.mark, "this group has no gates", "name them, as in `gates = [\"q\", \"qn\"]`");
         }
-        figures(context, group);
+        checked.extend(figures(context, group).map(|how| Group { gates, how }));
     }
-    if let Some(first) = groups.first() {
-        context.not_analysed(first.mark, "groups: not analysed yet; delays are drawn independently");
-    }
+    checked
 }
 
-fn figures(context: &mut Context<'_>, group: &NewGroup) {
+fn figures(context: &mut Context<'_>, group: &NewGroup) -> Option<Together> {
     if let Some(tracking) = group.tracking.filter(|t| !(0.0..=1.0).contains(&t.what)) {
         let message = format!("`tracking` is {}; it lies from 0 to 1", tracking.what);
         context.faults.add(tracking.mark, message, "0 is independent, 1 is in step");
@@ -289,11 +289,15 @@ fn figures(context: &mut Context<'_>, group: &NewGroup) {
         context.faults.add(mismatch.mark, message, "write the greatest deviation as a fraction, as in 0.05");
     }
     if group.incomplete {
-        return;
+        return None;
     }
     let help = "write either `tracking`, or `scale` with `mismatch`";
     match (group.tracking, group.scale, group.mismatch) {
-        (Some(_), None, None) | (None, Some(_), Some(_)) => {}
+        (Some(tracking), None, None) => return Some(Together::Tracking(Billionths::nearest(tracking.what))),
+        (None, Some(scale), Some(mismatch)) => {
+            let (least, greatest) = (Billionths::nearest(scale.what.0), Billionths::nearest(scale.what.1));
+            return Some(Together::Scale { least, greatest, mismatch: Billionths::nearest(mismatch.what) });
+        }
         (None, None, None) => {
             context.faults.add(group.mark, "this group does not say how its gates belong together", help)
         }
@@ -303,4 +307,5 @@ fn figures(context: &mut Context<'_>, group: &NewGroup) {
         (None, Some(said), None) => context.faults.add(said.mark, "`scale` lacks its `mismatch`", help),
         (None, None, Some(said)) => context.faults.add(said.mark, "`mismatch` lacks its `scale`", help),
     }
+    None
 }

@@ -4,6 +4,7 @@
 //! told. Circuits built in code get the same checks as files.
 
 mod circuit;
+mod conditions;
 mod context;
 mod delays;
 mod reference;
@@ -16,6 +17,7 @@ mod tests;
 
 use std::sync::Arc;
 
+pub use conditions::NewCondition;
 pub use said::*;
 pub use said_rules::*;
 pub use stimulus::MAX_MOMENTS;
@@ -66,6 +68,7 @@ pub struct Builder {
     function_delays: Vec<(Said<String>, NewDelay)>,
     assume_min: Option<Said<String>>,
     groups: Vec<NewGroup>,
+    conditions: Vec<NewCondition>,
     steps: Vec<Listed>,
     clocks: Vec<NewClock>,
     every_change: Option<Mark>,
@@ -110,6 +113,7 @@ impl Builder {
             function_delays: Vec::new(),
             assume_min: None,
             groups: Vec::new(),
+            conditions: Vec::new(),
             steps: Vec::new(),
             clocks: Vec::new(),
             every_change: None,
@@ -212,9 +216,15 @@ impl Builder {
         self
     }
 
-    /// Gates whose delays belong together. Checked, not analysed yet.
+    /// Gates whose delays belong together.
     pub fn group(&mut self, group: NewGroup) -> &mut Builder {
         self.groups.push(group);
+        self
+    }
+
+    /// A condition of temperature or supply, under which every delay is multiplied by a factor.
+    pub fn condition(&mut self, condition: NewCondition) -> &mut Builder {
+        self.conditions.push(condition);
         self
     }
 
@@ -320,8 +330,9 @@ impl Builder {
         context.notes = std::mem::take(&mut self.notes);
 
         let network = circuit::network(&mut context, &self.inputs, &self.gates, 0);
-        let delays = delays::model(&mut context, &self, &network);
-        delays::groups(&mut context, &self.groups);
+        let mut delays = delays::model(&mut context, &self, &network);
+        delays.model.groups = delays::groups(&mut context, &self.groups);
+        let conditions = conditions::check(&mut context, &self.conditions, &delays.model);
         let outputs = circuit::outputs(&mut context, self.outputs.as_deref(), &network);
         let begin = self.begin_of(&mut context);
         let stimulus = stimulus::check(&mut context, &self, &delays);
@@ -354,6 +365,7 @@ impl Builder {
             reference: reference.map(Arc::new),
             limits,
             plan,
+            conditions,
             notes: in_order(context.notes),
             not_analysed: in_order(context.not_analysed),
         })
