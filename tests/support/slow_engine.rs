@@ -472,16 +472,20 @@ impl Slow<'_> {
                     Some(0..) | None => now + delta.max(1),
                     Some(_) => now + delta,
                 });
-                match self.computed[node] {
-                    Some(last) if at.is_none_or(|at| at <= last) => {
-                        let last = newest.filter(|event| i128::from(event.at) == last);
-                        self.cancel(last.expect("what came before has not vanished itself"));
+                let standing = newest.filter(|event| Some(i128::from(event.at)) == self.computed[node]);
+                let at = match standing {
+                    Some(last) if at.is_none_or(|at| at <= i128::from(last.at)) => {
+                        self.cancel(last);
+                        at
                     }
+                    // where rounding to whole fs would have it go with one that is gone already it stands, in order
                     _ => {
-                        let at = at.expect("after something, or the first") as u64;
+                        let earliest = newest.map_or(self.now, |event| event.at) + 1;
+                        let at = at.map_or(earliest, |at| at.max(i128::from(earliest)) as u64);
                         self.pending.insert(Event { at, node, value: f, since: self.now });
+                        Some(i128::from(at))
                     }
-                }
+                };
                 self.computed[node] = at;
             }
         }
