@@ -108,8 +108,11 @@ fn read(table: &Path) -> Result<Vec<Row>, Box<dyn Error>> {
     Ok(rows)
 }
 
-/// The families with their ink, whether their line is dashed and their points open, and where their name stands.
-const FAMILIES: [(&str, RGBColor, bool, bool, (HPos, VPos)); 4] = [
+/// A family of networks: its name, its ink, whether its line is dashed and its points are open, where its name stands.
+type Family = (&'static str, RGBColor, bool, bool, (HPos, VPos));
+
+/// The families of the picture.
+const FAMILIES: [Family; 4] = [
     ("dividers", INK, false, false, (HPos::Left, VPos::Bottom)),
     ("array of latches", RGBColor(0x0b, 0x6b, 0x7d), false, true, (HPos::Left, VPos::Top)),
     ("random, near", RGBColor(0x7a, 0x3f, 0xa0), true, false, (HPos::Left, VPos::Center)),
