@@ -12,10 +12,10 @@ use super::agenda::{Agenda, Due};
 use super::observer::{Closing, End, Finish, Hit, Observer, Opening};
 use super::plan::{Kind, Plan, Rule};
 use super::queue::Queue;
+use super::recovery::{age, recovering};
 use super::recurrence::{Recurred, Recurrence, Rest};
 use crate::circuit::{GateId, NetId, WireId};
 use crate::control::Control;
-use crate::delay::{involution, recovered};
 use crate::instance::Instance;
 use crate::logic::{State, Value};
 use crate::time::{Span, Time};
@@ -497,7 +497,8 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         let due = match node.kind.rule {
             Rule::Involution => {
                 let previous = &mut self.previous[index as usize];
-                match recovering(plan.figure(index), value, &node.delay, at, list.back(), previous) {
+                let last = list.back().map(|event| event.due);
+                match recovering(plan.figure(index), value, &node.delay, at, last, previous) {
                     Some(due) => due,
                     None => {
                         // both vanish; of three values the one before may still be another
@@ -673,47 +674,6 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         };
         let value = |index: u32| nodes[index as usize].out.value();
         self.recurrence.end_batch(now, &value, &pending, &|index| NetId(plan.inputs + index));
-    }
-}
-
-/// When an involution gate's output changes to `value`, for a change of its function at `at`; `None` if that would not
-/// come after its previous change, which is still pending: then both vanish. `previous` is renewed.
-#[inline(never)]
-fn recovering<L: Level, T>(
-    tau: Span,
-    value: L,
-    delay: &[u64; 2],
-    at: u64,
-    last: Option<&Event<L, T>>,
-    previous: &mut Option<i128>,
-) -> Option<u64> {
-    let now = i128::from(at);
-    let full = value.delay(delay);
-    // the other edge's: of X both are the shorter one
-    let other = if value.value() == Value::X { full } else { delay[usize::from(value.value() == Value::Zero)] };
-    let since = previous.map(|previous| now - previous);
-    let due = involution(tau, Span::from_fs(full), Span::from_fs(other), since).map(|delay| now + delay);
-    let pending = last.filter(|last| *previous == Some(i128::from(last.due)));
-    *previous = due;
-    if let Some(last) = pending
-        && due.is_none_or(|due| due <= i128::from(last.due))
-    {
-        return None;
-    }
-    // what does not vanish comes after everything that is pending and after now
-    let earliest = last.map_or(at, |last| last.due) + 1;
-    let due = due.map_or(earliest, |due| due.max(i128::from(earliest)) as u64);
-    *previous = Some(i128::from(due));
-    Some(due)
-}
-
-/// The age of an involution gate's previous change, for comparison; all ages that make no difference any more are alike.
-fn age(tau: Span, delay: &[u64; 2], previous: Option<i128>, now: u64) -> u64 {
-    let age = previous.map(|previous| i128::from(now) - previous);
-    match age.filter(|age| !recovered(tau, delay.map(Span::from_fs), *age)) {
-        // below zero if it vanished ahead; no age reaches 2^63
-        Some(age) => age as i64 as u64,
-        None => i64::MIN as u64,
     }
 }
 

@@ -8,6 +8,7 @@ mod level;
 mod observer;
 mod plan;
 mod queue;
+mod recovery;
 mod recurrence;
 mod trace;
 
