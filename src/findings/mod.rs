@@ -6,6 +6,7 @@
 mod asked;
 mod departure;
 mod judge;
+mod paths;
 mod pulses;
 mod words;
 
@@ -13,4 +14,5 @@ pub use crate::logic::Shape;
 pub use asked::{Asked, Pattern, Question, RuleKey};
 pub use departure::{Against, Departed, Departure};
 pub use judge::{Answers, Judge, Match, Seen, Sink, matches, matches_any};
+pub use paths::{Leg, Path, RacePair};
 pub use words::{Fact, Kind, Measure, Reason, Subject};

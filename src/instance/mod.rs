@@ -5,9 +5,11 @@
 
 mod bounces;
 mod groups;
+mod quantity;
 mod sampler;
 mod strata;
 
+pub use quantity::{Quantities, Quantity, Target};
 pub use sampler::{LAYOUT, Sampler};
 
 use crate::delay::{DelayRange, Delays};

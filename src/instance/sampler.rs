@@ -29,11 +29,11 @@ use rand_chacha::ChaCha8Rng;
 use super::Instance;
 use super::bounces::Bounces;
 use super::groups::Groups;
+use super::quantity::{Quantities, Quantity, Target};
 use super::strata::{BOARD_KEYS, SAMPLE_KEYS, Strata};
-use crate::delay::{DelayRange, Marginal};
+use crate::delay::Marginal;
 use crate::logic::Bits;
-use crate::scenario::{Begin, Place, Scenario};
-use crate::time::Span;
+use crate::scenario::{Begin, Scenario};
 
 /// The number of the layout above; a result of another layout cannot be merged or replayed.
 pub const LAYOUT: u32 = 1;
@@ -63,104 +63,10 @@ struct Stratified {
     sample: Strata,
 }
 
-/// A quantity that is not exact: its place in the stream, its range, where it goes.
-#[derive(Clone, Copy, Debug)]
-struct Quantity {
-    place: u64,
-    range: DelayRange,
-    target: Target,
-}
-
-#[derive(Clone, Copy, Debug)]
-enum Target {
-    Gate {
-        gate: u32,
-        edge: u8,
-    },
-    GateBoth(u32),
-    Wire {
-        wire: u32,
-        edge: u8,
-    },
-    WireBoth(u32),
-    Period(u32),
-    High(u32),
-    Place(u32),
-    Skew {
-        step: u32,
-        entry: u32,
-    },
-    First(u32),
-    /// The range is shifted up by the jitter.
-    Jitter {
-        clock: u32,
-        edge: u32,
-    },
-}
-
 impl Sampler {
     /// A sampler for the draws of a scenario.
     pub fn new(scenario: &Scenario) -> Sampler {
-        let (gates, wires) = (scenario.circuit.gate_count() as u64, scenario.circuit.wire_count() as u64);
-        let stimulus = &scenario.stimulus;
-        let mut board_plan = Vec::new();
-        let mut add = |place: u64, range: DelayRange, target: Target| {
-            if !range.is_exact() {
-                board_plan.push(Quantity { place, range, target });
-            }
-        };
-        for (g, edges) in scenario.delays.gate.iter().enumerate() {
-            let (place, gate) = (2 * g as u64, g as u32);
-            if scenario.delays.gate_one_draw[g] {
-                add(place, edges[0], Target::GateBoth(gate));
-            } else {
-                add(place, edges[0], Target::Gate { gate, edge: 0 });
-                add(place + 1, edges[1], Target::Gate { gate, edge: 1 });
-            }
-        }
-        for (w, edges) in scenario.delays.wire.iter().enumerate() {
-            let (place, wire) = (2 * (gates + w as u64), w as u32);
-            if scenario.delays.wire_one_draw[w] {
-                add(place, edges[0], Target::WireBoth(wire));
-            } else {
-                add(place, edges[0], Target::Wire { wire, edge: 0 });
-                add(place + 1, edges[1], Target::Wire { wire, edge: 1 });
-            }
-        }
-        for (c, clock) in stimulus.clocks.iter().enumerate() {
-            let place = 2 * (gates + wires + c as u64);
-            add(place, clock.period, Target::Period(c as u32));
-            add(place + 1, clock.high, Target::High(c as u32));
-        }
-
-        let mut sample_plan = Vec::new();
-        let mut add = |place: u64, range: DelayRange, target: Target| {
-            if !range.is_exact() {
-                sample_plan.push(Quantity { place, range, target });
-            }
-        };
-        let mut place = 0u64;
-        for (s, step) in stimulus.steps.iter().enumerate() {
-            if let Place::At(range) | Place::After(range) | Place::When { wait: range, .. } = &step.place {
-                add(place, *range, Target::Place(s as u32));
-            }
-            place += 1;
-            for entry in 0..step.set.len() {
-                if let Some(skew) = step.skew {
-                    add(place, skew, Target::Skew { step: s as u32, entry: entry as u32 });
-                }
-                place += 1;
-            }
-        }
-        for (c, clock) in stimulus.clocks.iter().enumerate() {
-            add(place, clock.first, Target::First(c as u32));
-            place += 1;
-            let range = DelayRange::between(Span::ZERO, clock.jitter + clock.jitter);
-            for edge in 0..2 * clock.count {
-                add(place, range, Target::Jitter { clock: c as u32, edge });
-                place += 1;
-            }
-        }
+        let Quantities { board: board_plan, sample: sample_plan, start_place } = Quantities::of(scenario);
         let gate_of = |quantity: &Quantity| match quantity.target {
             Target::Gate { gate, .. } | Target::GateBoth(gate) => Some(gate),
             _ => None,
@@ -185,9 +91,9 @@ impl Sampler {
             sample_plan,
             groups,
             strata,
-            bounces: Bounces::new(stimulus),
-            start_place: place,
-            gates: gates as usize,
+            bounces: Bounces::new(&scenario.stimulus),
+            start_place,
+            gates: scenario.circuit.gate_count(),
             random_start: scenario.begin == Begin::Random,
             board: None,
         }
@@ -259,21 +165,7 @@ impl Sampler {
             let u = self.rng.next_u64();
             let u = strata.map_or(u, |(strata, draw)| strata.number(draw, number, u));
             let span = groups.span(self.draw, number, quantity.range, u);
-            match quantity.target {
-                Target::Gate { gate, edge } => into.delays.gate[gate as usize][edge as usize] = span,
-                Target::GateBoth(gate) => into.delays.gate[gate as usize] = [span, span],
-                Target::Wire { wire, edge } => into.delays.wire[wire as usize][edge as usize] = span,
-                Target::WireBoth(wire) => into.delays.wire[wire as usize] = [span, span],
-                Target::Period(clock) => into.clocks[clock as usize].period = span,
-                Target::High(clock) => into.clocks[clock as usize].high = span,
-                Target::Place(step) => into.places[step as usize] = span,
-                Target::Skew { step, entry } => into.skews[step as usize][entry as usize] = span,
-                Target::First(clock) => into.clocks[clock as usize].first = span,
-                Target::Jitter { clock, edge } => {
-                    let middle = quantity.range.max.fs() / 2;
-                    into.clocks[clock as usize].jitter[edge as usize] = span.fs() as i64 - middle as i64;
-                }
-            }
+            into.set(quantity, span);
         }
     }
 }

@@ -7,6 +7,7 @@ mod departure;
 mod report;
 mod single;
 mod verdict;
+mod why;
 
 use std::collections::BTreeMap;
 
@@ -14,6 +15,7 @@ pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, comp
 pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
+pub use why::{Away, Needs, Pull, Why};
 pub use verdict::{grouped, verdict, with_typical};
 
 use crate::circuit::NetId;
@@ -122,7 +124,8 @@ pub fn review(
         shown.push((index, run));
     }
     let verdict = with_typical(scenario, &sweep, &typical, verdict(scenario, &sweep));
-    Ok(Review { asked, states, typical: Some(typical), sweep, shown, verdict })
+    let why = vec![None; sweep.findings.len()];
+    Ok(Review { asked, states, typical: Some(typical), sweep, shown, why, verdict })
 }
 
 /// What makes findings alike: kind, rule and which of several, net.

@@ -1,5 +1,6 @@
 //! What a review says.
 
+use super::why::Why;
 use crate::circuit::NetId;
 use crate::engine::Trace;
 use crate::findings::{Against, Asked, Fact, Kind, Reason};
@@ -111,6 +112,8 @@ pub struct Review {
     pub sweep: SweepReport,
     /// For some findings (by index in `sweep.findings`) their failing case, run.
     pub shown: Vec<(usize, RunReport)>,
+    /// For each finding of the sweep why it happens, where that was looked into.
+    pub why: Vec<Option<Why>>,
     /// The verdict.
     pub verdict: Verdict,
 }

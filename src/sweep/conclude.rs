@@ -403,6 +403,7 @@ impl Judging<'_> {
             tie: None,
             sample: Some(fact.first),
             worst_sample: Some(fact.worst.map_or(fact.first, |(_, sample)| sample)),
+            case: None,
         }
     }
 }

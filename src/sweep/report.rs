@@ -2,6 +2,7 @@
 
 use crate::engine::Hit;
 use crate::findings::{Against, Kind, Measure, Question, Reason, Subject};
+use crate::instance::Which;
 use crate::logic::State;
 use crate::scenario::{Condition, Plan};
 use crate::time::Span;
@@ -162,10 +163,12 @@ pub struct Finding {
     pub against: Option<Against>,
     /// What exact equality of times has to do with it; `None`: not analysed, or nothing.
     pub tie: Option<Tie>,
-    /// The first sample that shows it.
+    /// The first sample that shows it; `None` if no draw does.
     pub sample: Option<u64>,
     /// The sample of the worst value; the first if there is no measure.
     pub worst_sample: Option<u64>,
+    /// The case that shows it where no draw does.
+    pub case: Option<Box<Which>>,
 }
 
 /// A finding by boards.

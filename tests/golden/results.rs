@@ -85,6 +85,7 @@ pub fn finding(kind: Kind, net: Option<NetId>, moment: u32, count: u64) -> Findi
         tie: None,
         sample: Some(17),
         worst_sample: Some(8123),
+        case: None,
     }
 }
 
@@ -202,6 +203,7 @@ pub fn review(scenario: &Scenario) -> Review {
             (1, cases::run(scenario, Which::Sample(17))),
             (3, cases::run(scenario, Which::Sample(8123))),
         ],
+        why: vec![None; sweep.findings.len()],
         sweep,
         asked,
         verdict: Verdict {
