@@ -76,6 +76,7 @@ pub mod flow;
 pub mod instance;
 pub mod logic;
 pub mod output;
+pub mod proof;
 pub mod reader;
 pub mod review;
 pub mod scenario;

@@ -1,0 +1,813 @@
+//! The exploration: every key and zone that some delays in their ranges can lead to.
+//!
+//! Gates are excited for at least their least and at most their greatest delay (bi-bounded inertial delay; Maler and Pnueli
+//! 1995). What is due at one instant may fire together; only sets that no part of could fire first are tried (see
+//! `joint.rs`). Judged is what lasts: a state from which time may go on before the next batch.
+
+use std::collections::{BTreeMap, VecDeque};
+use std::time::Instant;
+
+use rustc_hash::FxHashMap;
+
+use super::joint::Joint;
+use super::key::{self, Agent, Info, Key, KeyMut, Layout, Mover, Slot, bit, put};
+use super::plant::{Plant, PlantPlace};
+use super::watch::{Arrival, Block, Fate, Watch};
+use super::zone::{self, Matrix};
+use crate::control::Control;
+
+/// The origin of a window that did not begin at rest, or of none.
+pub const NOWHERE: u32 = u32::MAX;
+
+/// What is done with a zone whose key is known.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Merge {
+    /// Dropped if it lies in one that is known: exact.
+    #[default]
+    Inclusion,
+    /// Joined to the one zone of the key: holds all that can happen, and perhaps more.
+    Hull,
+    /// Dropped only if it is known: exact, and every cycle is a real one.
+    Equality,
+}
+
+/// How an exploration goes.
+#[derive(Clone, Copy, Debug)]
+pub struct Mode {
+    /// What is done with a zone whose key is known.
+    pub merge: Merge,
+    /// May things due at one instant fire together? Without, what needs exactly equal times is left out.
+    pub joint: bool,
+    /// Keep which zone leads to which.
+    pub edges: bool,
+    /// End at the first hit of the watch.
+    pub first_hit: bool,
+}
+
+impl Default for Mode {
+    fn default() -> Mode {
+        Mode { merge: Merge::Inclusion, joint: true, edges: false, first_hit: false }
+    }
+}
+
+/// What an exploration may spend.
+#[derive(Clone, Debug)]
+pub struct Budget {
+    /// Zones kept, at most.
+    pub zones: u64,
+    /// Bytes of zones and keys, at most.
+    pub bytes: u64,
+    /// When it ends at the latest.
+    pub until: Option<Instant>,
+    /// Stops it.
+    pub control: Control,
+}
+
+/// Why an exploration did not come to its end.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Ended {
+    /// It did.
+    Complete,
+    /// The watch has its hit.
+    Hit,
+    /// As many zones as it may keep.
+    Zones,
+    /// As much memory as it may take.
+    Bytes,
+    /// As long as it may take.
+    Seconds,
+    /// More things at one instant than are tried together, or than fit a word.
+    Together,
+    /// More changes under way on one wire than are kept.
+    InFlight,
+    /// The caller asked to stop.
+    Cancelled,
+}
+
+/// One zone that was kept, and how it was come by.
+#[derive(Clone, Debug)]
+struct Node {
+    key: u32,
+    at: usize,
+    parent: u32,
+    /// What fired, as a range of `fired`.
+    fired: (u32, u32),
+    gone: bool,
+}
+
+/// A state at rest, and the first node that led to it.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
+pub struct Rest {
+    /// Steps taken.
+    pub steps: u32,
+    /// The state at rest in which its window began, by number; [`NOWHERE`] if it did not begin at rest.
+    pub origin: u32,
+    /// Itself, by number.
+    pub state: u32,
+}
+
+/// One block of a trace.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Fired {
+    /// What fired together; empty for a step that waited for rest.
+    pub movers: Vec<Mover>,
+    /// The values of all signals after it.
+    pub values: Vec<u64>,
+    /// Steps taken after it.
+    pub steps: usize,
+}
+
+/// What an exploration found.
+pub struct Explored {
+    /// Why it ended.
+    pub ended: Ended,
+    /// Zones that were kept.
+    pub zones: u64,
+    /// Bytes of zones and keys.
+    pub bytes: u64,
+    /// States at rest, each with the node that led to it first.
+    pub rests: BTreeMap<Rest, u32>,
+    /// The states that numbers stand for: values of all signals.
+    pub states: Vec<Box<[u64]>>,
+    /// Hits of the watch, each with the node that led to it first.
+    pub hits: BTreeMap<u32, u32>,
+    /// Which node leads to which, where that was asked for.
+    pub edges: Vec<(u32, u32)>,
+    /// Did a step come before rest, by number of the step?
+    pub cut: Vec<bool>,
+    nodes: Vec<Node>,
+    movers: Vec<Mover>,
+    keys: Vec<u64>,
+    layout: Layout,
+}
+
+impl Explored {
+    fn key(&self, number: u32) -> Key<'_> {
+        let at = number as usize * self.layout.len;
+        Key { words: &self.keys[at..at + self.layout.len], layout: self.layout }
+    }
+
+    /// The blocks that led to a node, first first.
+    pub fn trace(&self, node: u32) -> Vec<Fired> {
+        let mut blocks = Vec::new();
+        let mut at = node;
+        while self.nodes[at as usize].parent != u32::MAX {
+            let it = &self.nodes[at as usize];
+            let key = self.key(it.key);
+            let movers = self.movers[it.fired.0 as usize..it.fired.1 as usize].to_vec();
+            blocks.push(Fired { movers, values: key.values().to_vec(), steps: key.steps() });
+            at = it.parent;
+        }
+        blocks.reverse();
+        blocks
+    }
+
+    /// The values of the signals where a trace begins.
+    pub fn start(&self, node: u32) -> Vec<u64> {
+        let mut at = node;
+        while self.nodes[at as usize].parent != u32::MAX {
+            at = self.nodes[at as usize].parent;
+        }
+        self.key(self.nodes[at as usize].key).values().to_vec()
+    }
+}
+
+/// Explores a plant from start states (values of inputs and gates; wires have those of their nets).
+pub fn explore<W: Watch>(plant: &Plant, starts: &[Vec<bool>], watch: &W, mode: Mode, budget: &Budget) -> Explored {
+    let mut explorer = Explorer::new(plant, watch, mode, budget);
+    for start in starts {
+        explorer.begin(start);
+    }
+    while explorer.found.ended == Ended::Complete
+        && let Some(node) = explorer.open.pop_front()
+    {
+        explorer.expand(node);
+    }
+    explorer.found
+}
+
+/// What follows from each known key, by its number.
+#[derive(Default)]
+struct Known {
+    /// By hash the last key of that hash; others are told apart word by word.
+    last: FxHashMap<u64, u32>,
+    /// The key of the same hash before it.
+    before: Vec<u32>,
+    infos: Vec<Info>,
+    /// The nodes of each key that are no part of another.
+    nodes: Vec<Vec<u32>>,
+    joint: Vec<Joint>,
+}
+
+struct Explorer<'a, W> {
+    plant: &'a Plant,
+    watch: &'a W,
+    mode: Mode,
+    budget: &'a Budget,
+    layout: Layout,
+    known: Known,
+    matrices: Vec<zone::Code>,
+    open: VecDeque<u32>,
+    state_numbers: FxHashMap<Box<[u64]>, u32>,
+    found: Explored,
+    expanded: u64,
+    // working memory
+    work: Matrix,
+    entry: Matrix,
+    lasting: Matrix,
+    words: Vec<u64>,
+    from: Vec<usize>,
+    disabled: Vec<(u32, usize)>,
+    hits: Vec<u32>,
+}
+
+/// How a step comes that could come at the instant of the one before it.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Tie {
+    /// It could not.
+    None,
+    /// It does.
+    Same,
+    /// It comes later.
+    Later,
+}
+
+impl<'a, W: Watch> Explorer<'a, W> {
+    fn new(plant: &'a Plant, watch: &'a W, mode: Mode, budget: &'a Budget) -> Self {
+        let layout = Layout::of(plant);
+        let found = Explored {
+            ended: Ended::Complete,
+            zones: 0,
+            bytes: 0,
+            rests: BTreeMap::new(),
+            states: Vec::new(),
+            hits: BTreeMap::new(),
+            edges: Vec::new(),
+            cut: vec![false; plant.steps.len()],
+            nodes: Vec::new(),
+            movers: Vec::new(),
+            keys: Vec::new(),
+            layout,
+        };
+        Explorer {
+            plant,
+            watch,
+            mode,
+            budget,
+            layout,
+            known: Known::default(),
+            matrices: Vec::new(),
+            open: VecDeque::new(),
+            state_numbers: FxHashMap::default(),
+            found,
+            expanded: 0,
+            work: Matrix::default(),
+            entry: Matrix::default(),
+            lasting: Matrix::default(),
+            words: vec![0; layout.len],
+            from: Vec::new(),
+            disabled: Vec::new(),
+            hits: Vec::new(),
+        }
+    }
+
+    /// Begins in a state, every clock at 0.
+    fn begin(&mut self, start: &[bool]) {
+        self.words.fill(0);
+        for (net, value) in start.iter().enumerate() {
+            put(&mut self.words, net, *value);
+        }
+        for (w, wire) in self.plant.wires.iter().enumerate() {
+            put(&mut self.words, self.plant.nets.len() + w, start[wire.net as usize]);
+        }
+        let values = self.words[..self.layout.values].to_vec();
+        let watch = self.watch.start(self.plant, &values);
+        let origin = if self.plant.power_up { self.state_number(&values) } else { NOWHERE };
+        let mut excited = vec![0; self.plant.gates.len().div_ceil(64)];
+        for gate in 0..self.plant.gates.len() {
+            put(&mut excited, gate, key::excited(self.plant, &values, gate));
+        }
+        let mut key = KeyMut { words: &mut self.words, layout: self.layout };
+        key.set_watch(watch, false);
+        key.set_step(0, origin);
+        let number = self.intern(&excited);
+        self.entry = Matrix::zero(self.known.infos[number as usize].slots.len());
+        self.hits.clear();
+        self.arrive(number, u32::MAX, &[]);
+    }
+
+    /// The number of the key in `words`.
+    fn intern(&mut self, excited: &[u64]) -> u32 {
+        let hash = {
+            let mut hasher = rustc_hash::FxHasher::default();
+            std::hash::Hash::hash(&self.words[..], &mut hasher);
+            std::hash::Hasher::finish(&hasher)
+        };
+        let mut number = self.known.last.get(&hash).copied().unwrap_or(u32::MAX);
+        while number != u32::MAX {
+            if self.found.key(number).words == &self.words[..] {
+                return number;
+            }
+            number = self.known.before[number as usize];
+        }
+        let number = self.known.infos.len() as u32;
+        let key = Key { words: &self.words, layout: self.layout };
+        let info = key::info(self.plant, key, excited.to_vec(), self.watch.clocks(key.watch()));
+        if info.agents.len() > 64 {
+            self.end(Ended::Together);
+        }
+        self.found.bytes += (self.layout.len * 8 + info.slots.len() * 48 + 250) as u64;
+        self.known.before.push(self.known.last.insert(hash, number).unwrap_or(u32::MAX));
+        self.known.infos.push(info);
+        self.known.nodes.push(Vec::new());
+        self.known.joint.push(Joint::default());
+        self.found.keys.extend_from_slice(&self.words);
+        number
+    }
+
+    fn end(&mut self, why: Ended) {
+        if self.found.ended == Ended::Complete {
+            self.found.ended = why;
+        }
+    }
+
+    fn state_number(&mut self, values: &[u64]) -> u32 {
+        if let Some(number) = self.state_numbers.get(values) {
+            return *number;
+        }
+        let number = self.found.states.len() as u32;
+        self.found.states.push(values.into());
+        self.state_numbers.insert(values.into(), number);
+        number
+    }
+
+    /// Tries everything that can come next.
+    fn expand(&mut self, node: u32) {
+        let Node { key, at, gone, .. } = self.found.nodes[node as usize];
+        if gone {
+            return;
+        }
+        self.expanded += 1;
+        if self.expanded & 0xFFF == 0 {
+            if self.budget.control.cancelled() {
+                self.end(Ended::Cancelled);
+            } else if self.budget.until.is_some_and(|until| Instant::now() > until) {
+                self.end(Ended::Seconds);
+            }
+        }
+        let info = &self.known.infos[key as usize];
+        let size = info.slots.len() + 1;
+        if info.rest && matches!(self.next_place(key), Some(PlantPlace::Rest(_))) {
+            self.try_fire(node, &[]);
+            return;
+        }
+        let reach = |agent: &Agent| self.matrices[at + agent.row * size] >= zone::at_most(agent.min);
+        let able: Vec<usize> = (0..info.agents.len()).filter(|i| reach(&info.agents[*i])).collect();
+        let agents: Vec<Agent> = able.iter().map(|i| info.agents[*i]).collect();
+        for agent in &agents {
+            self.try_fire(node, std::slice::from_ref(agent));
+        }
+        if !self.mode.joint || able.len() < 2 {
+            return;
+        }
+        let mut joint = std::mem::take(&mut self.known.joint[key as usize]);
+        let enabled = able.iter().fold(0u64, |all, i| all | 1 << i);
+        let words = self.found.key(key);
+        if !joint.prepare(self.plant, words, &mut self.known.infos[key as usize], enabled) {
+            self.end(Ended::Together);
+        }
+        let sets: Vec<u64> = joint.sets().into_iter().filter(|set| set & !enabled == 0).collect();
+        self.known.joint[key as usize] = joint;
+        for set in sets {
+            let all = &self.known.infos[key as usize].agents;
+            let agents: Vec<Agent> = (0..all.len()).filter(|i| set >> i & 1 == 1).map(|i| all[i]).collect();
+            self.try_fire(node, &agents);
+        }
+    }
+
+    fn next_place(&self, key: u32) -> Option<PlantPlace> {
+        self.plant.steps.get(self.found.key(key).steps()).map(|step| step.place)
+    }
+
+    /// Fires agents of a node together, in every way in which a step among them can come. No agents: the step that waited
+    /// for rest.
+    fn try_fire(&mut self, node: u32, agents: &[Agent]) {
+        let key = self.found.nodes[node as usize].key;
+        let steps = self.found.key(key).steps();
+        let step = agents.is_empty() || agents.iter().any(|agent| matches!(agent.mover, Mover::Step(_)));
+        let mut movers: Vec<Mover> = agents.iter().map(|agent| agent.mover).collect();
+        if !step {
+            self.fire(node, agents, &movers, Tie::None);
+            return;
+        }
+        if agents.is_empty() {
+            movers.push(Mover::Step(self.plant.steps[steps].whole()));
+        }
+        let at = movers.iter().position(|mover| matches!(mover, Mover::Step(_))).expect("a step is among them");
+        let info = &self.known.infos[key as usize];
+        let since = info.row(Slot::Since);
+        let size = info.slots.len() + 1;
+        let start = self.found.nodes[node as usize].at;
+        let could = steps > 0 && since > 0 && self.matrices[start + since] == zone::AT_MOST_ZERO;
+        let ties: &[Tie] = if could { &[Tie::Same, Tie::Later] } else { &[Tie::None] };
+        debug_assert!(since < size);
+        for tie in ties {
+            for mask in self.first_changes(key, steps) {
+                movers[at] = Mover::Step(mask);
+                self.fire(node, agents, &movers, *tie);
+            }
+        }
+    }
+
+    /// The sets of inputs (a bit an entry) that a step can change at its very instant.
+    fn first_changes(&self, key: u32, steps: usize) -> Vec<u64> {
+        let step = &self.plant.steps[steps];
+        if step.skew == 0 {
+            return vec![u64::MAX];
+        }
+        let values = self.found.key(key).values();
+        let differs = |(net, value): &(u32, bool)| bit(values, *net as usize) != *value;
+        let changing =
+            step.set.iter().enumerate().filter(|(_, entry)| differs(entry)).fold(0u64, |all, (i, _)| all | 1 << i);
+        // one that stays as it is may be the first as well
+        let none = step.others || changing.count_ones() < step.set.len() as u32;
+        let mut parts = Vec::new();
+        let mut part = changing;
+        while part != 0 {
+            parts.push(part);
+            part = (part - 1) & changing;
+        }
+        if none || changing == 0 {
+            parts.push(0);
+        }
+        parts
+    }
+
+    /// Fires movers together out of a node.
+    fn fire(&mut self, node: u32, agents: &[Agent], movers: &[Mover], tie: Tie) {
+        let (old_key, at) = (self.found.nodes[node as usize].key, self.found.nodes[node as usize].at);
+        let (plant, layout) = (self.plant, self.layout);
+        let info = &self.known.infos[old_key as usize];
+        let size = info.slots.len() + 1;
+        self.work.load(size, &self.matrices[at..at + size * size]);
+        let key = self.found.key(old_key);
+        let steps = key.steps();
+        let step = movers.iter().any(|mover| matches!(mover, Mover::Step(_)));
+        if agents.is_empty()
+            && let PlantPlace::Rest(wait) = plant.steps[steps].place
+        {
+            self.work.shift(wait);
+        }
+        for agent in agents {
+            let late = matches!(agent.mover, Mover::Late(_));
+            let able = if late {
+                self.work.bound(0, agent.row, zone::BELOW_ZERO)
+            } else {
+                self.work.at_least(agent.row, agent.min)
+            };
+            if !able {
+                return;
+            }
+        }
+        if step {
+            let fired = info.row(Slot::Fired);
+            if fired > 0 && !self.work.bound(0, fired, zone::BELOW_ZERO) {
+                return;
+            }
+            let since = info.row(Slot::Since);
+            let able = match tie {
+                Tie::None => true,
+                Tie::Same => self.work.bound(since, 0, zone::AT_MOST_ZERO),
+                Tie::Later => self.work.bound(0, since, zone::BELOW_ZERO),
+            };
+            if !able {
+                return;
+            }
+        }
+
+        // the values after it
+        self.words.copy_from_slice(key.words);
+        let mut next = KeyMut { words: &mut self.words, layout };
+        let mut late = false;
+        let mut room = true;
+        let mut changed: Vec<u32> = Vec::with_capacity(movers.len());
+        for mover in movers {
+            match *mover {
+                Mover::Gate(gate) => changed.push((plant.inputs + gate as usize) as u32),
+                Mover::Arrival(wire) => {
+                    changed.push((plant.nets.len() + wire as usize) as u32);
+                    room &= next.add_flights(wire as usize, -1);
+                }
+                Mover::Overtaking(wire, _) => room &= next.add_flights(wire as usize, -2),
+                Mover::Step(mask) => {
+                    let mut waits = 0;
+                    for (entry, (net, value)) in plant.steps[steps].set.iter().enumerate() {
+                        if bit(key.values(), *net as usize) == *value {
+                            continue;
+                        }
+                        if mask == u64::MAX || mask >> entry & 1 == 1 {
+                            changed.push(*net);
+                        } else {
+                            waits |= 1 << entry;
+                        }
+                    }
+                    next.set_skew(waits);
+                }
+                Mover::Late(entry) => {
+                    late = true;
+                    changed.push(plant.steps[steps - 1].set[entry as usize].0);
+                    let left = Key { words: next.words, layout }.skew() & !(1 << entry);
+                    next.set_skew(left);
+                }
+            }
+        }
+        for signal in &changed {
+            let value = !bit(next.words, *signal as usize);
+            put(next.words, *signal as usize, value);
+            if let Some(leads) = plant.leads.get(*signal as usize) {
+                for wire in leads {
+                    room &= next.add_flights(*wire as usize, 1);
+                }
+            }
+        }
+        if !room {
+            self.end(Ended::InFlight);
+            return;
+        }
+        let mut excited = info.excited.clone();
+        let mut again = |gate: usize| put(&mut excited, gate, key::excited(plant, &self.words, gate));
+        for signal in &changed {
+            plant.readers[*signal as usize].iter().for_each(|gate| again(*gate as usize));
+            if let Some(gate) = (*signal as usize).checked_sub(plant.inputs).filter(|gate| *gate < plant.gates.len()) {
+                again(gate);
+            }
+        }
+
+        // what is no longer excited was not due yet
+        self.disabled.clear();
+        for agent in &info.agents {
+            if let Mover::Gate(gate) = agent.mover
+                && !bit(&excited, gate as usize)
+                && !movers.contains(&agent.mover)
+            {
+                if !self.work.bound(agent.row, 0, zone::below(agent.max)) {
+                    return;
+                }
+                self.disabled.push((gate, agent.row));
+            }
+        }
+        // what cools may not be excited again at the instant at which it was disabled
+        for (slot, row) in info.slots.iter().zip(1..) {
+            if let Slot::Cool(gate) = slot
+                && bit(&excited, *gate as usize)
+                && !self.work.bound(0, row, zone::BELOW_ZERO)
+            {
+                return;
+            }
+        }
+        let due = |agent: &Agent| self.work.may_reach(agent.row, agent.min);
+        let could_excite = |gate: u32| {
+            info.agents.iter().any(|agent| {
+                let reads = |signal: u32| plant.gates[gate as usize].reads.iter().any(|read| read.0 == signal);
+                !movers.contains(&agent.mover)
+                    && due(agent)
+                    && match agent.mover {
+                        Mover::Gate(other) => {
+                            bit(&excited, other as usize) && reads((plant.inputs + other as usize) as u32)
+                        }
+                        Mover::Arrival(wire) => reads((plant.nets.len() + wire as usize) as u32),
+                        Mover::Overtaking(..) => false,
+                        Mover::Step(_) => plant.steps[steps].set.iter().any(|(net, _)| reads(*net)),
+                        Mover::Late(entry) => reads(plant.steps[steps - 1].set[entry as usize].0),
+                    }
+            })
+        };
+        let mut next = KeyMut { words: &mut self.words, layout };
+        for (slot, row) in info.slots.iter().zip(1..) {
+            if let Slot::Cool(gate) = *slot {
+                let still = self.work.at(0, row) == zone::AT_MOST_ZERO;
+                let cools = !bit(&excited, gate as usize) && still && could_excite(gate);
+                next.set_cools(gate as usize, cools);
+            }
+        }
+        let cooling: Vec<u32> =
+            self.disabled.iter().map(|(gate, _)| *gate).filter(|gate| could_excite(*gate)).collect();
+        for gate in &cooling {
+            next.set_cools(*gate as usize, true);
+        }
+        // a step that is due comes before what fires at its instant
+        let fired = !step && info.agents.iter().any(|agent| matches!(agent.mover, Mover::Step(_)) && due(agent));
+
+        let before = key.values();
+        let (watched, origin, rested) = (key.watch(), key.origin(), info.rest);
+        let same_instant = tie == Tie::Same;
+        let block = Block {
+            plant,
+            before,
+            after: &self.words[..layout.values],
+            step: step.then_some(steps),
+            same_instant,
+            rested,
+            late,
+            disabled: &self.disabled,
+            zone: &self.work,
+            row: info.watch_row,
+        };
+        self.hits.clear();
+        let hits = &mut self.hits;
+        let (state, fates) = self.watch.block(watched, &block, &mut |hit| hits.push(hit));
+        let new_origin = match (step && !same_instant, rested) {
+            (false, _) => origin,
+            (true, false) => NOWHERE,
+            (true, true) => {
+                let before = before.to_vec();
+                self.state_number(&before)
+            }
+        };
+        if step && !rested && !same_instant {
+            self.found.cut[steps] = true;
+        }
+        let mut next = KeyMut { words: &mut self.words, layout };
+        next.set_step(steps + usize::from(step), new_origin);
+        next.set_watch(state, fired);
+        let number = self.intern(&excited);
+
+        // the clocks after it
+        let (old, new) = (&self.known.infos[old_key as usize], &self.known.infos[number as usize]);
+        let old_words = self.found.key(old_key);
+        let remaining = |wire: u32| {
+            let gone = move |place: &u8| {
+                let first = movers.contains(&Mover::Arrival(wire)) && *place == 0;
+                let over = movers
+                    .iter()
+                    .any(|m| matches!(m, Mover::Overtaking(w, k) if *w == wire && (*place == *k || *place + 1 == *k)));
+                first || over
+            };
+            (0..old_words.flights(wire as usize)).filter(move |place| !gone(place))
+        };
+        self.from.clear();
+        for slot in &new.slots {
+            let row = match *slot {
+                Slot::Gate(gate) if movers.contains(&Mover::Gate(gate)) => 0,
+                Slot::Flight(wire, place) => {
+                    let was = remaining(wire).nth(place as usize);
+                    was.map_or(0, |was| old.row(Slot::Flight(wire, was)))
+                }
+                Slot::Since if step => 0,
+                Slot::Fired => 0,
+                Slot::Cool(gate) if cooling.contains(&gate) => 0,
+                Slot::Watch(clock) => match fates[clock as usize] {
+                    Fate::Keep => old.row(Slot::Watch(clock)),
+                    Fate::Begin => 0,
+                },
+                slot => old.row(slot),
+            };
+            self.from.push(row);
+        }
+        self.work.gather(&self.from, &mut self.entry);
+        self.arrive(number, node, movers);
+    }
+
+    /// A key was arrived at, with the zone in `entry` and the hits of the block.
+    fn arrive(&mut self, number: u32, parent: u32, movers: &[Mover]) {
+        let info = &self.known.infos[number as usize];
+        let key = self.found.key(number);
+        let (state, rest, steps, row) = (key.watch(), info.rest, key.steps(), info.watch_row);
+        self.lasting.load(self.entry.size, &self.entry.bounds);
+        let lasting = info.agents.iter().all(|agent| self.lasting.bound(agent.row, 0, zone::below(agent.max)));
+        if lasting {
+            let arrival = Arrival { plant: self.plant, values: key.values(), rest, steps, zone: &self.lasting, row };
+            let hits = &mut self.hits;
+            self.watch.arrive(state, &arrival, &mut |hit| hits.push(hit));
+        }
+        let rested = (rest && lasting).then(|| {
+            let (values, origin) = (key.values().to_vec(), key.origin());
+            (values, origin)
+        });
+        let rested =
+            rested.map(|(values, origin)| Rest { steps: steps as u32, origin, state: self.state_number(&values) });
+
+        // time passes, but for a step that waits for rest
+        let mut number = number;
+        let waits = rest && matches!(self.plant.steps.get(steps).map(|step| step.place), Some(PlantPlace::Rest(_)));
+        let mut goes_on = true;
+        if !waits {
+            let info = &self.known.infos[number as usize];
+            self.entry.elapse(info.agents.iter().map(|agent| (agent.row, agent.max)));
+            let hits = &mut self.hits;
+            let (new_state, left) = self.watch.elapsed(state, &mut self.entry, row, &mut |hit| hits.push(hit));
+            goes_on = left;
+            if left && new_state != state {
+                number = self.with_watch(number, new_state);
+            }
+        }
+        let node = match goes_on {
+            true => self.keep(number, parent, movers),
+            false => None,
+        };
+        // what was found is kept with a way to it, even if the zone is not
+        let first = rested.is_some_and(|rest| !self.found.rests.contains_key(&rest))
+            || self.hits.iter().any(|hit| !self.found.hits.contains_key(hit));
+        let node = match node {
+            None if first => Some(self.push(number, parent, movers, true)),
+            node => node,
+        };
+        if let Some(node) = node {
+            if let Some(rest) = rested {
+                self.found.rests.entry(rest).or_insert(node);
+            }
+            for hit in self.hits.drain(..) {
+                self.found.hits.entry(hit).or_insert(node);
+            }
+        }
+        if self.mode.first_hit && !self.found.hits.is_empty() {
+            self.end(Ended::Hit);
+        }
+    }
+
+    /// The key with another state of the watch; `entry` gets its clocks.
+    fn with_watch(&mut self, number: u32, state: u32) -> u32 {
+        self.words.copy_from_slice(self.found.key(number).words);
+        let fired = self.found.key(number).fired();
+        KeyMut { words: &mut self.words, layout: self.layout }.set_watch(state, fired);
+        let excited = self.known.infos[number as usize].excited.clone();
+        let other = self.intern(&excited);
+        let (old, new) = (&self.known.infos[number as usize], &self.known.infos[other as usize]);
+        self.from.clear();
+        self.from.extend(new.slots.iter().map(|slot| old.row(*slot)));
+        std::mem::swap(&mut self.work, &mut self.entry);
+        self.work.gather(&self.from, &mut self.entry);
+        other
+    }
+
+    /// Keeps the zone in `entry`, unless it is known. Returns its node, if it is a new one.
+    fn keep(&mut self, number: u32, parent: u32, movers: &[Mover]) -> Option<u32> {
+        let size = self.entry.size * self.entry.size;
+        let mut nodes = std::mem::take(&mut self.known.nodes[number as usize]);
+        let mut known = None;
+        let mut joined = false;
+        nodes.retain(|node| {
+            let at = self.found.nodes[*node as usize].at;
+            let kept = &mut self.matrices[at..at + size];
+            match self.mode.merge {
+                _ if known.is_some() => true,
+                Merge::Equality => {
+                    known = (kept == &self.entry.bounds[..]).then_some(*node);
+                    true
+                }
+                Merge::Inclusion if zone::within(&self.entry.bounds, kept) => {
+                    known = Some(*node);
+                    true
+                }
+                Merge::Inclusion if zone::within(kept, &self.entry.bounds) => {
+                    self.found.nodes[*node as usize].gone = true;
+                    false
+                }
+                Merge::Inclusion => true,
+                Merge::Hull => {
+                    known = Some(*node);
+                    joined = !zone::within(&self.entry.bounds, kept);
+                    zone::hull(kept, &self.entry.bounds);
+                    true
+                }
+            }
+        });
+        if let Some(node) = known {
+            self.known.nodes[number as usize] = nodes;
+            if self.mode.edges && parent != u32::MAX {
+                self.found.edges.push((parent, node));
+            }
+            if joined {
+                self.open.push_back(node);
+            }
+            return None;
+        }
+        let node = self.push(number, parent, movers, false);
+        nodes.push(node);
+        self.known.nodes[number as usize] = nodes;
+        if self.mode.edges && parent != u32::MAX {
+            self.found.edges.push((parent, node));
+        }
+        self.open.push_back(node);
+        self.found.zones += 1;
+        if self.found.zones > self.budget.zones {
+            self.end(Ended::Zones);
+        } else if self.found.bytes > self.budget.bytes {
+            self.end(Ended::Bytes);
+        }
+        Some(node)
+    }
+
+    fn push(&mut self, key: u32, parent: u32, movers: &[Mover], gone: bool) -> u32 {
+        let first = self.found.movers.len() as u32;
+        self.found.movers.extend_from_slice(movers);
+        let at = self.matrices.len();
+        if !gone {
+            self.matrices.extend_from_slice(&self.entry.bounds);
+        }
+        self.found.bytes += (self.entry.bounds.len() * 8 + movers.len() * 16 + 44) as u64;
+        let fired = (first, self.found.movers.len() as u32);
+        self.found.nodes.push(Node { key, at, parent, fired, gone });
+        self.found.nodes.len() as u32 - 1
+    }
+}

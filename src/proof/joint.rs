@@ -1,0 +1,151 @@
+//! Which movers must be tried together: sets due at one instant of which no part could go first.
+//!
+//! A set is reducible if some part of it can fire first, at the same instant, such that afterwards every gate of the rest is
+//! still excited, and every gate outside that is excited before and after the whole set is excited in between, too (else it
+//! would begin anew); a step that is in the set is in that part. Then firing the parts one after the other does the same.
+//! Irreducible sets hang together: of any two parts one reads the other, or an excited gate reads both.
+
+use rustc_hash::{FxHashMap, FxHashSet};
+
+use super::key::{Agent, Info, Key, Mover, bit, excited, put};
+use super::plant::Plant;
+
+/// Movers of one set, at most.
+const TOGETHER: u32 = 6;
+/// Sets looked at for one key, at most.
+const SETS: usize = 20_000;
+
+/// The irreducible sets of one key that were asked for so far, a bit an agent.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Joint {
+    known: FxHashMap<u64, bool>,
+    asked: FxHashSet<u64>,
+}
+
+impl Joint {
+    /// The irreducible sets found.
+    pub fn sets(&self) -> Vec<u64> {
+        let mut sets: Vec<u64> = self.known.iter().filter(|(_, keep)| **keep).map(|(set, _)| *set).collect();
+        sets.sort_unstable();
+        sets
+    }
+
+    /// Finds those among the agents of this mask. False: there may be more than were looked at.
+    pub fn prepare(&mut self, plant: &Plant, key: Key<'_>, info: &mut Info, enabled: u64) -> bool {
+        if !self.asked.insert(enabled) {
+            return true;
+        }
+        if info.near.is_empty() {
+            info.near = near(plant, info, key);
+        }
+        let mut complete = true;
+        let mut open: Vec<u64> = (0..info.agents.len()).filter(|i| enabled >> i & 1 == 1).map(|i| 1 << i).collect();
+        let mut seen: FxHashSet<u64> = open.iter().copied().collect();
+        while let Some(set) = open.pop() {
+            let mut around = 0;
+            let mut rest = set;
+            while rest != 0 {
+                around |= info.near[rest.trailing_zeros() as usize];
+                rest &= rest - 1;
+            }
+            let mut next = around & enabled & !set;
+            while next != 0 {
+                let grown = set | 1 << next.trailing_zeros();
+                next &= next - 1;
+                if !seen.insert(grown) {
+                    continue;
+                }
+                if grown.count_ones() > TOGETHER || seen.len() > SETS {
+                    complete = false;
+                    continue;
+                }
+                open.push(grown);
+                self.known.entry(grown).or_insert_with(|| is_irreducible(plant, key, info, grown));
+            }
+        }
+        complete
+    }
+}
+
+/// The signals that an agent changes.
+fn signals(plant: &Plant, key: Key<'_>, agent: &Agent) -> Vec<(u32, bool)> {
+    let flipped = |signal: usize| vec![(signal as u32, !bit(key.values(), signal))];
+    match agent.mover {
+        Mover::Gate(gate) => flipped(plant.inputs + gate as usize),
+        Mover::Arrival(wire) => flipped(plant.nets.len() + wire as usize),
+        Mover::Overtaking(..) => Vec::new(),
+        Mover::Step(_) => plant.steps[key.steps()].set.clone(),
+        Mover::Late(entry) => vec![plant.steps[key.steps() - 1].set[entry as usize]],
+    }
+}
+
+/// For each agent those that it may have to fire together with.
+fn near(plant: &Plant, info: &Info, key: Key<'_>) -> Vec<u64> {
+    let mut readers: FxHashMap<u32, u64> = FxHashMap::default();
+    // who changes something that a gate reads
+    for (i, agent) in info.agents.iter().enumerate() {
+        for (signal, _) in signals(plant, key, agent) {
+            for gate in &plant.readers[signal as usize] {
+                *readers.entry(*gate).or_insert(0) |= 1 << i;
+            }
+        }
+    }
+    let mut near = vec![0u64; info.agents.len()];
+    for (i, agent) in info.agents.iter().enumerate() {
+        if let Mover::Gate(gate) = agent.mover {
+            // every gate here is excited: it may need those that change what it reads, and they each other
+            let movers = readers.get(&gate).copied().unwrap_or(0);
+            let all = movers | 1 << i;
+            let mut rest = all;
+            while rest != 0 {
+                near[rest.trailing_zeros() as usize] |= all;
+                rest &= rest - 1;
+            }
+        }
+    }
+    for (i, mask) in near.iter_mut().enumerate() {
+        *mask &= !(1 << i);
+    }
+    near
+}
+
+/// Values after some agents have fired.
+fn after(plant: &Plant, key: Key<'_>, info: &Info, set: u64) -> Vec<u64> {
+    let mut values = key.values().to_vec();
+    let mut rest = set;
+    while rest != 0 {
+        let agent = &info.agents[rest.trailing_zeros() as usize];
+        for (signal, value) in signals(plant, key, agent) {
+            put(&mut values, signal as usize, value);
+        }
+        rest &= rest - 1;
+    }
+    values
+}
+
+fn is_irreducible(plant: &Plant, key: Key<'_>, info: &Info, set: u64) -> bool {
+    let gates = |mask: u64, inside: bool| {
+        info.agents.iter().enumerate().filter_map(move |(i, agent)| match agent.mover {
+            Mover::Gate(gate) if (mask >> i & 1 == 1) == inside => Some(gate as usize),
+            _ => None,
+        })
+    };
+    let step = (0..info.agents.len()).filter(|i| matches!(info.agents[*i].mover, Mover::Step(_)));
+    let step = step.fold(0u64, |all, i| all | 1 << i) & set;
+    let whole = after(plant, key, info, set);
+    // gates outside that are excited before and after
+    let kept: Vec<usize> = gates(set, false).filter(|gate| excited(plant, &whole, *gate)).collect();
+    let mut part = (set - 1) & set;
+    while part != 0 {
+        if part & step == step {
+            let between = after(plant, key, info, part);
+            let goes = gates(set & !part, true).all(|gate| excited(plant, &between, gate))
+                && kept.iter().all(|gate| excited(plant, &between, *gate));
+            if goes {
+                return false;
+            }
+        }
+        part = (part - 1) & set;
+    }
+    true
+}

@@ -1,0 +1,290 @@
+//! The discrete part of an explored state, as words: values, step, what is on its way, what a watch remembers.
+
+use super::plant::{Plant, PlantPlace};
+
+/// Where each part is in the words of a key.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Layout {
+    /// Words of signal values.
+    pub values: usize,
+    /// Word of steps taken (low half) and origin (high half).
+    step: usize,
+    /// Word of the watch's state (low half) and flags.
+    watch: usize,
+    /// Word of the inputs that the last step has still to change, a bit an entry of its set.
+    skew: usize,
+    /// First word of the numbers of arrivals under way, a byte a wire.
+    flights: usize,
+    /// First word of the gates that cool, a bit a gate.
+    cool: usize,
+    /// Words in all.
+    pub len: usize,
+}
+
+/// Arrivals under way on one wire, at most.
+pub(super) const FLIGHTS: u8 = 16;
+
+const FIRED: u64 = 1 << 32;
+
+impl Layout {
+    pub fn of(plant: &Plant) -> Layout {
+        let values = plant.signals().div_ceil(64).max(1);
+        let flights = values + 3;
+        let cool = flights + plant.wires.len().div_ceil(8);
+        Layout {
+            values,
+            step: values,
+            watch: values + 1,
+            skew: values + 2,
+            flights,
+            cool,
+            len: cool + plant.gates.len().div_ceil(64),
+        }
+    }
+}
+
+/// A key that can be read.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Key<'a> {
+    pub words: &'a [u64],
+    pub layout: Layout,
+}
+
+/// Is bit `at` of some words set?
+#[inline]
+pub(super) fn bit(words: &[u64], at: usize) -> bool {
+    words[at >> 6] >> (at & 63) & 1 == 1
+}
+
+/// Sets bit `at` of some words.
+#[inline]
+pub(super) fn put(words: &mut [u64], at: usize, value: bool) {
+    let mask = 1 << (at & 63);
+    words[at >> 6] = if value { words[at >> 6] | mask } else { words[at >> 6] & !mask };
+}
+
+impl<'a> Key<'a> {
+    /// The values of all signals.
+    pub fn values(&self) -> &'a [u64] {
+        &self.words[..self.layout.values]
+    }
+
+    /// Steps taken.
+    pub fn steps(&self) -> usize {
+        self.words[self.layout.step] as u32 as usize
+    }
+
+    /// The number of the state at rest in which the present window began; `NOWHERE` if it did not begin at rest.
+    pub fn origin(&self) -> u32 {
+        (self.words[self.layout.step] >> 32) as u32
+    }
+
+    pub fn watch(&self) -> u32 {
+        self.words[self.layout.watch] as u32
+    }
+
+    /// Does it keep the time since something last fired?
+    pub fn fired(&self) -> bool {
+        self.words[self.layout.watch] & FIRED != 0
+    }
+
+    pub fn skew(&self) -> u64 {
+        self.words[self.layout.skew]
+    }
+
+    pub fn flights(&self, wire: usize) -> u8 {
+        (self.words[self.layout.flights + wire / 8] >> (8 * (wire % 8))) as u8
+    }
+
+    pub fn cools(&self, gate: usize) -> bool {
+        bit(&self.words[self.layout.cool..], gate)
+    }
+
+    pub fn any_cools(&self) -> bool {
+        self.words[self.layout.cool..self.layout.len].iter().any(|word| *word != 0)
+    }
+}
+
+/// Changes to the words of a key.
+pub(super) struct KeyMut<'a> {
+    pub words: &'a mut [u64],
+    pub layout: Layout,
+}
+
+impl KeyMut<'_> {
+    pub fn set_step(&mut self, steps: usize, origin: u32) {
+        self.words[self.layout.step] = steps as u64 | u64::from(origin) << 32;
+    }
+
+    pub fn set_watch(&mut self, state: u32, fired: bool) {
+        self.words[self.layout.watch] = u64::from(state) | if fired { FIRED } else { 0 };
+    }
+
+    pub fn set_skew(&mut self, mask: u64) {
+        self.words[self.layout.skew] = mask;
+    }
+
+    /// Adds to the arrivals under way. False: there are too many.
+    pub fn add_flights(&mut self, wire: usize, by: i8) -> bool {
+        let (at, shift) = (self.layout.flights + wire / 8, 8 * (wire % 8));
+        let old = (self.words[at] >> shift) as u8;
+        let new = old.wrapping_add_signed(by);
+        self.words[at] = self.words[at] & !(0xFF << shift) | u64::from(new) << shift;
+        new <= FLIGHTS
+    }
+
+    pub fn set_cools(&mut self, gate: usize, cools: bool) {
+        put(&mut self.words[self.layout.cool..], gate, cools);
+    }
+}
+
+/// A clock of a key.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Slot {
+    /// How long a gate has been excited.
+    Gate(u32),
+    /// How long an arrival has been under way: the wire, and how many are before it.
+    Flight(u32, u8),
+    /// Time since the last step.
+    Since,
+    /// Time since the start.
+    Start,
+    /// Time since something last fired.
+    Fired,
+    /// Time since a gate was disabled that could be excited again at once.
+    Cool(u32),
+    /// A clock of the watch.
+    Watch(u8),
+}
+
+/// What may happen next.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Mover {
+    /// A gate (by its number in the plant) takes its new value.
+    Gate(u32),
+    /// The first change under way on a wire arrives.
+    Arrival(u32),
+    /// On this wire the change with so many before it comes due with or before the one before it: both are gone.
+    Overtaking(u32, u8),
+    /// The next step comes; of the inputs that it sets, those of this mask (a bit an entry) change at once.
+    Step(u64),
+    /// An input that the last step sets (entry of its set) changes, later than the step.
+    Late(u32),
+}
+
+/// One mover of a key with its clock and range.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Agent {
+    pub mover: Mover,
+    /// Row of its clock.
+    pub row: usize,
+    pub min: i64,
+    pub max: i64,
+}
+
+/// What follows from a key alone.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Info {
+    /// The clocks, row 1 first.
+    pub slots: Vec<Slot>,
+    /// What may happen next.
+    pub agents: Vec<Agent>,
+    /// For each agent those that it may have to happen together with, a bit an agent; empty until asked for.
+    pub near: Vec<u64>,
+    /// The excited gates, a bit a gate.
+    pub excited: Vec<u64>,
+    /// Is nothing pending in the circuit?
+    pub rest: bool,
+    /// Row of the first clock of the watch.
+    pub watch_row: usize,
+    /// Is it a timed step that comes next?
+    pub timed: bool,
+}
+
+impl Info {
+    pub fn row(&self, slot: Slot) -> usize {
+        self.slots.iter().position(|it| *it == slot).map_or(0, |at| at + 1)
+    }
+}
+
+/// Is gate `gate` excited for these signal values?
+#[inline]
+pub(super) fn excited(plant: &Plant, values: &[u64], gate: usize) -> bool {
+    let it = &plant.gates[gate];
+    let mut sum = 0;
+    for &(signal, weight) in &it.reads {
+        if bit(values, signal as usize) {
+            sum += weight;
+        }
+    }
+    it.function.value(sum) != bit(values, plant.inputs + gate)
+}
+
+/// What follows from a key alone. `watch_clocks` is the number of clocks that the watch has in this state.
+pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks: u8) -> Info {
+    let values = key.values();
+    let mut info = Info { excited, ..Info::default() };
+    for gate in 0..plant.gates.len() {
+        if bit(&info.excited, gate) {
+            let delay = plant.gates[gate].delay[usize::from(!bit(values, plant.inputs + gate))];
+            info.slots.push(Slot::Gate(gate as u32));
+            let mover = Mover::Gate(gate as u32);
+            info.agents.push(Agent { mover, row: info.slots.len(), min: delay.min, max: delay.max });
+        }
+    }
+    for (w, wire) in plant.wires.iter().enumerate() {
+        let end = bit(values, plant.nets.len() + w);
+        for place in 0..key.flights(w) {
+            // arrivals take turns: the first brings what the end has not
+            let delay = wire.delay[usize::from(end == (place % 2 == 1))];
+            info.slots.push(Slot::Flight(w as u32, place));
+            let mover = if place == 0 { Mover::Arrival(w as u32) } else { Mover::Overtaking(w as u32, place) };
+            let agent = Agent { mover, row: info.slots.len(), min: delay.min, max: delay.max };
+            // in order, those behind cannot be due before the first has come
+            if place == 0 || !wire.in_order {
+                info.agents.push(agent);
+            }
+        }
+    }
+    info.rest = info.slots.is_empty() && key.skew() == 0;
+    let next = plant.steps.get(key.steps());
+    let place = next.map(|step| step.place);
+    let skewed = key.skew() != 0;
+    let timed = matches!(place, Some(PlantPlace::At(_) | PlantPlace::After(_)));
+    info.timed = timed;
+    let since = skewed || timed;
+    if since {
+        info.slots.push(Slot::Since);
+    }
+    let since_row = info.slots.len();
+    if skewed {
+        let last = &plant.steps[key.steps() - 1];
+        for entry in 0..last.set.len() as u32 {
+            if key.skew() >> entry & 1 == 1 {
+                let mover = Mover::Late(entry);
+                info.agents.push(Agent { mover, row: since_row, min: 0, max: last.skew });
+            }
+        }
+    }
+    if let (Some(PlantPlace::After(ticks)), Some(step), false) = (place, next, skewed) {
+        let mover = Mover::Step(step.whole());
+        info.agents.push(Agent { mover, row: since_row, min: ticks.min, max: ticks.max });
+    }
+    // `at` steps are never behind one that waits for rest
+    if plant.steps[key.steps()..].iter().any(|step| matches!(step.place, PlantPlace::At(_))) {
+        info.slots.push(Slot::Start);
+        if let (Some(PlantPlace::At(ticks)), Some(step), false) = (place, next, skewed) {
+            let mover = Mover::Step(step.whole());
+            info.agents.push(Agent { mover, row: info.slots.len(), min: ticks.min, max: ticks.max });
+        }
+    }
+    if key.fired() {
+        info.slots.push(Slot::Fired);
+    }
+    if key.any_cools() {
+        info.slots.extend((0..plant.gates.len()).filter(|gate| key.cools(*gate)).map(|gate| Slot::Cool(gate as u32)));
+    }
+    info.watch_row = info.slots.len() + 1;
+    info.slots.extend((0..watch_clocks).map(Slot::Watch));
+    info
+}

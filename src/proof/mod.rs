@@ -1,0 +1,15 @@
+//! All delays in their ranges at once: bounded-delay verdicts by zones.
+
+mod explore;
+mod joint;
+mod key;
+mod plant;
+mod watch;
+mod watches;
+pub mod zone;
+
+pub use explore::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, Rest, explore};
+pub use key::Mover;
+pub use plant::{NotCovered, Plant, PlantGate, PlantPlace, PlantStep, PlantWire, Ticks};
+pub use watch::{Arrival, Block, Fate, Nothing, Watch};
+pub use watches::{Moved, Moves, Settles, Shows};

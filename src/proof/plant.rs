@@ -1,0 +1,269 @@
+//! The part of a scenario that an exploration works on: the cone of some nets, with delays and steps in whole ticks.
+//!
+//! A signal is a net (inputs first, then gates) or the end of a wire. Gates read signals; a wire end follows its net.
+
+use rustc_hash::FxHashMap;
+
+use crate::circuit::{Compiled, GateId, NetId, NetSet, WireId};
+use crate::delay::{DelayRange, Filter};
+use crate::scenario::{Place, Scenario};
+use crate::time::Span;
+
+/// Inputs of one step with skew, at most: any part of them may change first.
+const SKEWED: usize = 6;
+
+/// Why an exploration cannot speak of a part of a scenario.
+#[derive(Clone, Debug, PartialEq, Eq, thiserror::Error)]
+pub enum NotCovered {
+    /// A gate that is not inertial.
+    #[error("the proof knows inertial gates only, and {0} is none")]
+    Filter(String),
+    /// Clocks.
+    #[error("the proof does not know clocks yet: {0}")]
+    Clock(String),
+    /// A step that bounces.
+    #[error("the proof does not know contact bounce: step \"{0}\"")]
+    Bounce(String),
+    /// A step that waits for a pattern.
+    #[error("the proof does not know steps that wait for a pattern: \"{0}\"")]
+    When(String),
+    /// Gates that begin at X.
+    #[error("the proof does not begin with unknown values")]
+    UnknownStart,
+    /// More inputs of one step with skew than an exploration tells apart.
+    #[error("step \"{0}\" sets more than 6 inputs with skew")]
+    WideSkew(String),
+    /// Times that do not fit whole numbers of 64 bits.
+    #[error("the times are too far apart for whole numbers of 64 bits")]
+    TooLong,
+}
+
+/// Least and greatest delay, in ticks.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct Ticks {
+    /// Least.
+    pub min: i64,
+    /// Greatest.
+    pub max: i64,
+}
+
+/// One gate.
+#[derive(Clone, Debug)]
+pub struct PlantGate {
+    /// Its number in the circuit.
+    pub gate: GateId,
+    /// Its function of the weighted sum of its signals.
+    pub function: Compiled,
+    /// The signals it reads, each with its weight.
+    pub reads: Vec<(u32, u64)>,
+    /// Delay of `[fall, rise]`.
+    pub delay: [Ticks; 2],
+}
+
+/// One wire.
+#[derive(Clone, Debug)]
+pub struct PlantWire {
+    /// Its number in the circuit.
+    pub wire: WireId,
+    /// The net it comes from.
+    pub net: u32,
+    /// Delay of `[fall, rise]`.
+    pub delay: [Ticks; 2],
+    /// Have both edges always the same delay, so that no arrival overtakes another?
+    pub in_order: bool,
+}
+
+/// When a step comes.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum PlantPlace {
+    /// From the start.
+    At(Ticks),
+    /// From the step before.
+    After(Ticks),
+    /// This long after rest.
+    Rest(i64),
+}
+
+/// One step.
+#[derive(Clone, Debug)]
+pub struct PlantStep {
+    /// Its moment.
+    pub moment: u32,
+    /// When.
+    pub place: PlantPlace,
+    /// The inputs that it sets here, by local net.
+    pub set: Vec<(u32, bool)>,
+    /// How much later than the first the last of its inputs may change.
+    pub skew: i64,
+    /// With skew: does it set other inputs besides, so that none of these need be the first?
+    pub others: bool,
+}
+
+impl PlantStep {
+    /// The mask of all inputs that it sets, a bit an entry.
+    pub fn whole(&self) -> u64 {
+        if self.skew == 0 { u64::MAX } else { (1 << self.set.len()) - 1 }
+    }
+}
+
+/// The part of a scenario that an exploration works on.
+#[derive(Clone, Debug)]
+pub struct Plant {
+    /// Femtoseconds a tick.
+    pub tick: u64,
+    /// Local net to net of the circuit.
+    pub nets: Vec<NetId>,
+    /// How many of the nets are inputs.
+    pub inputs: usize,
+    /// The gates; the net of gate g is `inputs + g`.
+    pub gates: Vec<PlantGate>,
+    /// The wires; the end of wire w is signal `nets.len() + w`.
+    pub wires: Vec<PlantWire>,
+    /// For each signal the gates that read it.
+    pub readers: Vec<Vec<u32>>,
+    /// For each net the wires that come from it.
+    pub leads: Vec<Vec<u32>>,
+    /// The steps, all of them, in order.
+    pub steps: Vec<PlantStep>,
+    /// Values of the inputs before the first step.
+    pub initial: Vec<bool>,
+    /// Is there a window from the start on, since it does not begin at rest?
+    pub power_up: bool,
+}
+
+/// The greatest common divisor.
+fn common(a: u64, b: u64) -> u64 {
+    if b == 0 { a } else { common(b, a % b) }
+}
+
+impl Plant {
+    /// The cone of these nets, with the whole stimulus. `spans` are times that matter besides, such as bounds of rules: they
+    /// are whole ticks, too.
+    ///
+    /// Errors: what the exploration does not cover.
+    pub fn of(scenario: &Scenario, of: &[NetId], spans: &[Span]) -> Result<Plant, NotCovered> {
+        let (circuit, delays, stimulus) = (&*scenario.circuit, &*scenario.delays, &*scenario.stimulus);
+        let cone: NetSet = circuit.cone(of);
+        let nets: Vec<NetId> = cone.iter().collect();
+        let local: FxHashMap<NetId, u32> = nets.iter().enumerate().map(|(i, net)| (*net, i as u32)).collect();
+        let inputs = nets.iter().filter(|net| circuit.is_input(**net)).count();
+        if scenario.begin == crate::scenario::Begin::Unknown {
+            return Err(NotCovered::UnknownStart);
+        }
+        if let Some(clock) = stimulus.clocks.first() {
+            return Err(NotCovered::Clock(circuit.name(clock.net).to_string()));
+        }
+
+        let mut times: Vec<Span> = spans.to_vec();
+        let mut add = |range: DelayRange| times.extend([range.min, range.max]);
+        let gates_of: Vec<GateId> = nets[inputs..].iter().filter_map(|net| circuit.driver(*net)).collect();
+        for gate in &gates_of {
+            if delays.filter[gate.index()] != Filter::Inertial {
+                return Err(NotCovered::Filter(circuit.name(circuit.net_of(*gate)).to_string()));
+            }
+            delays.gate[gate.index()].into_iter().for_each(&mut add);
+        }
+        let wires_of: Vec<WireId> = (0..circuit.wire_count() as u32)
+            .map(WireId)
+            .filter(|w| cone.contains(circuit.net_of(circuit.wires()[w.index()].1)))
+            .collect();
+        wires_of.iter().for_each(|wire| delays.wire[wire.index()].into_iter().for_each(&mut add));
+        for step in &stimulus.steps {
+            if step.bounce.is_some() {
+                return Err(NotCovered::Bounce(step.label.clone()));
+            }
+            match &step.place {
+                Place::At(range) | Place::After(range) => add(*range),
+                Place::Rest(wait) => add(DelayRange::exact(*wait)),
+                Place::When { .. } => return Err(NotCovered::When(step.label.clone())),
+            }
+            if let Some(skew) = step.skew {
+                if step.set.len() > SKEWED {
+                    return Err(NotCovered::WideSkew(step.label.clone()));
+                }
+                add(skew);
+            }
+        }
+        let tick = times.iter().fold(0, |tick, span| common(tick, span.fs())).max(1);
+        // every bound that can arise is a sum of some of these
+        let sum = times.iter().map(|span| u128::from(span.fs() / tick)).sum::<u128>();
+        if sum * 8 >= 1 << 60 {
+            return Err(NotCovered::TooLong);
+        }
+        let ticks = |span: Span| (span.fs() / tick) as i64;
+        let range = |range: DelayRange| Ticks { min: ticks(range.min), max: ticks(range.max) };
+
+        let wire_at: FxHashMap<(NetId, GateId), u32> =
+            wires_of.iter().enumerate().map(|(i, w)| (circuit.wires()[w.index()], i as u32)).collect();
+        let signals = nets.len() + wires_of.len();
+        let mut readers = vec![Vec::new(); signals];
+        let mut gates = Vec::new();
+        for (g, gate) in gates_of.iter().enumerate() {
+            let mut reads = Vec::new();
+            for &(net, weight) in circuit.sources(*gate) {
+                let signal = match wire_at.get(&(net, *gate)) {
+                    Some(wire) => nets.len() as u32 + wire,
+                    None => local[&net],
+                };
+                readers[signal as usize].push(g as u32);
+                reads.push((signal, weight));
+            }
+            let function = circuit.compiled(*gate).clone();
+            gates.push(PlantGate { gate: *gate, function, reads, delay: delays.gate[gate.index()].map(range) });
+        }
+        let mut leads = vec![Vec::new(); nets.len()];
+        let mut wires = Vec::new();
+        for (w, wire) in wires_of.iter().enumerate() {
+            let net = local[&circuit.wires()[wire.index()].0];
+            leads[net as usize].push(w as u32);
+            let in_order = delays.wire_one_draw[wire.index()];
+            wires.push(PlantWire { wire: *wire, net, delay: delays.wire[wire.index()].map(range), in_order });
+        }
+        let steps = stimulus.steps.iter().enumerate().map(|(s, step)| PlantStep {
+            moment: stimulus.moment_of_step(s as u32),
+            place: match &step.place {
+                Place::At(it) => PlantPlace::At(range(*it)),
+                Place::After(it) => PlantPlace::After(range(*it)),
+                Place::Rest(wait) => PlantPlace::Rest(ticks(*wait)),
+                Place::When { .. } => unreachable!("refused above"),
+            },
+            set: step.set.iter().filter_map(|(net, value)| local.get(net).map(|net| (*net, *value))).collect(),
+            skew: step.skew.map_or(0, |skew| ticks(skew.max - skew.min)),
+            others: step.set.iter().any(|(net, _)| !local.contains_key(net)),
+        });
+        let steps = steps.collect();
+        let initial = nets[..inputs].iter().map(|net| stimulus.initial[net.index()]).collect();
+        Ok(Plant {
+            tick,
+            nets,
+            inputs,
+            gates,
+            wires,
+            readers,
+            leads,
+            steps,
+            initial,
+            power_up: scenario.begin_window().is_some(),
+        })
+    }
+
+    /// Number of signals: nets and wire ends.
+    pub fn signals(&self) -> usize {
+        self.nets.len() + self.wires.len()
+    }
+
+    /// The local number of a net.
+    pub fn local(&self, net: NetId) -> Option<u32> {
+        self.nets.binary_search(&net).ok().map(|at| at as u32)
+    }
+
+    /// A time in ticks; it must have been among the plant's times or be a multiple of the tick.
+    pub fn ticks(&self, span: Span) -> i64 {
+        (span.fs() / self.tick) as i64
+    }
+
+    /// A number of ticks as a time.
+    pub fn span(&self, ticks: i64) -> Span {
+        Span::from_fs(ticks.max(0) as u64 * self.tick)
+    }
+}

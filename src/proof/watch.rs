@@ -1,0 +1,109 @@
+//! What an exploration looks for besides the states at rest: an observer with a small state of its own and up to two
+//! clocks.
+
+use super::plant::Plant;
+use super::zone::Matrix;
+
+/// What becomes of a clock of a watch.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Fate {
+    /// It goes on.
+    Keep,
+    /// It begins anew at 0.
+    Begin,
+}
+
+/// A batch of events at one instant, or a part of one that can go first.
+#[derive(Clone, Copy, Debug)]
+pub struct Block<'a> {
+    /// The plant.
+    pub plant: &'a Plant,
+    /// Values of the signals before, a bit a signal.
+    pub before: &'a [u64],
+    /// Values after.
+    pub after: &'a [u64],
+    /// The step that is in it, by number.
+    pub step: Option<usize>,
+    /// Is that step at the very instant of the one before it, and so in its window?
+    pub same_instant: bool,
+    /// Did nothing pend in the circuit before it?
+    pub rested: bool,
+    /// Do inputs change in it, of a step that came before?
+    pub late: bool,
+    /// Gates that were excited and no longer are, without having fired, with the rows of their clocks.
+    pub disabled: &'a [(u32, usize)],
+    /// The time since each clock began, as a zone at the instant of the block, before any clock begins anew.
+    pub zone: &'a Matrix,
+    /// The row of the watch's first clock; the second is the next.
+    pub row: usize,
+}
+
+impl Block<'_> {
+    /// Does this net change? To which value?
+    pub fn change(&self, net: u32) -> Option<bool> {
+        let (before, after) = (super::key::bit(self.before, net as usize), super::key::bit(self.after, net as usize));
+        (before != after).then_some(after)
+    }
+
+    /// Does the step in it change an input here, now or later?
+    pub fn touches(&self) -> bool {
+        let changes = |(net, value): &(u32, bool)| super::key::bit(self.before, *net as usize) != *value;
+        self.step.is_some_and(|step| self.plant.steps[step].set.iter().any(changes))
+    }
+}
+
+/// A state that was arrived at.
+#[derive(Clone, Copy, Debug)]
+pub struct Arrival<'a> {
+    /// The plant.
+    pub plant: &'a Plant,
+    /// Values of the signals, a bit a signal.
+    pub values: &'a [u64],
+    /// Does nothing pend in the circuit?
+    pub rest: bool,
+    /// Steps taken.
+    pub steps: usize,
+    /// The zone on arrival, cut to those cases in which time goes on before the next batch.
+    pub zone: &'a Matrix,
+    /// The row of the watch's first clock.
+    pub row: usize,
+}
+
+/// An observer of an exploration. A hit is something found, by a number of the watch's own choosing; the first way to each
+/// is kept.
+pub trait Watch {
+    /// Clocks that run in this state.
+    fn clocks(&self, state: u32) -> u8;
+
+    /// The state at the start.
+    fn start(&self, plant: &Plant, values: &[u64]) -> u32;
+
+    /// A block of changes: the next state, and what becomes of the clocks that run in it (by their place there). Where
+    /// the next state has fewer or other clocks, `Keep` keeps the clock of the same place.
+    fn block(&self, state: u32, block: &Block<'_>, hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]);
+
+    /// A state that lasts was arrived at.
+    fn arrive(&self, _state: u32, _arrival: &Arrival<'_>, _hit: &mut dyn FnMut(u32)) {}
+
+    /// Time has passed: the zone may be cut to what is still of interest, and a clock that is of none any more may end
+    /// (the new state says so). False: nothing is left of interest.
+    fn elapsed(&self, state: u32, _zone: &mut Matrix, _row: usize, _hit: &mut dyn FnMut(u32)) -> (u32, bool) {
+        (state, true)
+    }
+}
+
+/// Looks for nothing.
+#[derive(Clone, Copy, Debug, Default)]
+pub struct Nothing;
+
+impl Watch for Nothing {
+    fn clocks(&self, _state: u32) -> u8 {
+        0
+    }
+    fn start(&self, _plant: &Plant, _values: &[u64]) -> u32 {
+        0
+    }
+    fn block(&self, state: u32, _block: &Block<'_>, _hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
+        (state, [Fate::Keep; 2])
+    }
+}

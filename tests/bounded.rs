@@ -1,0 +1,181 @@
+//! The bounded view on circuits whose answers are known: numbers of states, settling bounds, hazards.
+
+use stillgate::circuit::NetId;
+use stillgate::control::Control;
+use stillgate::engine::Program;
+use stillgate::proof::{Budget, Ended, Explored, Mode, Moves, Nothing, Plant, Settles, Watch, explore};
+use stillgate::reader;
+use stillgate::scenario::Scenario;
+
+fn read(text: &str) -> Scenario {
+    reader::read(text, "t").unwrap_or_else(|faults| panic!("{faults}")).scenario
+}
+
+fn budget() -> Budget {
+    Budget { zones: 200_000, bytes: 1 << 30, until: None, control: Control::default() }
+}
+
+struct World {
+    scenario: Scenario,
+    plant: Plant,
+    start: Vec<bool>,
+}
+
+impl World {
+    fn of(text: &str) -> World {
+        let scenario = read(text);
+        let nets: Vec<NetId> = scenario.circuit.nets().collect();
+        let plant = Plant::of(&scenario, &nets, &[]).unwrap();
+        let program = Program::new(&scenario, &Control::default()).unwrap();
+        let start = program.start().unwrap().clone();
+        let start = plant.nets.iter().map(|net| start.ones.get(net.index())).collect();
+        World { scenario, plant, start }
+    }
+
+    fn explore<W: Watch>(&self, watch: &W, mode: Mode) -> Explored {
+        let found = explore(&self.plant, std::slice::from_ref(&self.start), watch, mode, &budget());
+        assert_eq!(found.ended, Ended::Complete);
+        found
+    }
+
+    /// Settled states after so many steps, as letters of the gates.
+    fn rests(&self, steps: u32, mode: Mode) -> Vec<String> {
+        let found = self.explore(&Nothing, mode);
+        let letters = |state: u32| {
+            let values = &found.states[state as usize];
+            (self.plant.inputs..self.plant.nets.len())
+                .map(|net| if values[net / 64] >> (net % 64) & 1 == 1 { '1' } else { '0' })
+                .collect::<String>()
+        };
+        let mut all: Vec<String> =
+            found.rests.keys().filter(|rest| rest.steps == steps).map(|rest| letters(rest.state)).collect();
+        all.sort();
+        all.dedup();
+        all
+    }
+
+    fn settling(&self, steps: u32, mode: Mode) -> (i64, i64) {
+        let watch = Settles::default();
+        self.explore(&watch, mode);
+        let [least, most] = watch.figures.borrow()[&steps];
+        (least.0, most.0)
+    }
+
+    fn moves(&self, net: &str, steps: u32, mode: Mode) -> Vec<u32> {
+        let net = self.plant.local(self.scenario.circuit.net(net).unwrap()).unwrap();
+        let found = self.explore(&Moves { net, most: 2 }, mode);
+        let mut all: Vec<u32> = found
+            .hits
+            .keys()
+            .map(|hit| Moves::moved(*hit))
+            .filter(|moved| moved.steps == steps)
+            .map(|moved| moved.count)
+            .collect();
+        all.sort();
+        all.dedup();
+        all
+    }
+}
+
+const WITHOUT_TIES: Mode =
+    Mode { joint: false, merge: stillgate::proof::Merge::Inclusion, edges: false, first_hit: false };
+
+fn latch(q: &str, qn: &str) -> World {
+    World::of(&format!(
+        r#"
+[inputs]
+r = 1
+s = 1
+[gates]
+q = {{ nor = ["r", "qn"], delay = {q} }}
+qn = {{ nor = ["s", "q"], delay = {qn} }}
+[[steps]]
+set = {{ r = 0, s = 0 }}
+"#
+    ))
+}
+
+#[test]
+fn a_latch_released_at_once() {
+    let mode = Mode::default();
+    let world = latch("[4, 8]", "[5, 9]");
+    assert_eq!(world.rests(1, mode), ["01", "10"]);
+    assert_eq!(world.rests(1, WITHOUT_TIES), ["01", "10"]);
+    assert_eq!(world.settling(1, WITHOUT_TIES), (4, 8));
+    assert_eq!(world.moves("q", 1, WITHOUT_TIES), [0, 1]);
+    assert_eq!(world.moves("q", 1, mode), [0, 1, 2, 3]);
+    let world = latch("[4, 6]", "[7, 9]");
+    assert_eq!(world.rests(1, mode), ["10"]);
+    assert_eq!(world.settling(1, mode), (4, 6));
+    // exactly touching: the other state needs an exact tie
+    let world = latch("[4, 6]", "[6, 9]");
+    assert_eq!(world.rests(1, mode), ["01", "10"]);
+    assert_eq!(world.rests(1, WITHOUT_TIES), ["10"]);
+}
+
+#[test]
+fn a_static_hazard_and_its_cure() {
+    let selector = |na: &str, ab: &str| {
+        World::of(&format!(
+            r#"
+[inputs]
+a = 1
+b = 1
+c = 1
+[gates]
+na = {{ not = ["a"], delay = {na} }}
+ab = {{ nand = ["a", "b"], delay = {ab} }}
+ac = {{ nand = ["na", "c"], delay = [3, 5] }}
+y = {{ nand = ["ab", "ac"], delay = [4, 7] }}
+[[steps]]
+set = {{ a = 0 }}
+[[steps]]
+set = {{ a = 1 }}
+"#
+        ))
+    };
+    let world = selector("[2, 5]", "[3, 5]");
+    assert_eq!(world.moves("y", 1, Mode::default()), [0, 2]);
+    assert_eq!(world.moves("y", 2, Mode::default()), [0]);
+    // just as long as the least delay of y: it still passes
+    let world = selector("[2, 5]", "[6, 8]");
+    assert_eq!(world.moves("y", 1, WITHOUT_TIES), [0, 2]);
+    let world = selector("[2, 5]", "[7, 8]");
+    assert_eq!(world.moves("y", 1, Mode::default()), [0]);
+}
+
+const FLIP_FLOP: &str = r#"
+[inputs]
+d = 0
+c = 0
+[initial]
+q = 0
+[gates]
+n1 = { nand = ["n4", "n2"], delay = [4, 6] }
+n2 = { nand = ["n1", "c"], delay = [4, 6] }
+n3 = { nand = ["n2", "c", "n4"], delay = [4, 6] }
+n4 = { nand = ["n3", "d"], delay = [4, 6] }
+q = { nand = ["n2", "qb"], delay = [4, 6] }
+qb = { nand = ["n3", "q"], delay = [4, 6] }
+"#;
+
+/// Setup of the six-NAND flip-flop, each gate 4 to 6: a rising data input 3 before the clock is taken, 2 before it need not
+/// be (n4 against n3); a falling one needs more than 8 (n4 and n1 against n2).
+#[test]
+fn setup_of_a_flip_flop() {
+    let outcomes = |first: &str, second: &str, apart: u32, data: u8| {
+        let text = format!(
+            "{}[[steps]]\nset = {{ {first} }}\n[[steps]]\nafter = {apart}\nset = {{ {second} }}\n",
+            FLIP_FLOP.replace("d = 0", &format!("d = {data}"))
+        );
+        let world = World::of(&text);
+        let mut q: Vec<char> = world.rests(2, WITHOUT_TIES).iter().map(|state| state.chars().nth(4).unwrap()).collect();
+        q.dedup();
+        q
+    };
+    assert_eq!(outcomes("d = 1", "c = 1", 3, 0), ['1']);
+    assert_eq!(outcomes("d = 1", "c = 1", 2, 0), ['1']);
+    assert_eq!(outcomes("d = 1", "c = 1", 1, 0), ['0', '1']);
+    assert_eq!(outcomes("d = 0", "c = 1", 9, 1), ['0']);
+    assert_eq!(outcomes("d = 0", "c = 1", 7, 1), ['0', '1']);
+}
