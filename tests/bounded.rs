@@ -3,7 +3,9 @@
 use stillgate::circuit::NetId;
 use stillgate::control::Control;
 use stillgate::engine::Program;
-use stillgate::proof::{Budget, Ended, Explored, Mode, Moves, Nothing, Plant, Settles, Watch, explore};
+use stillgate::proof::{
+    Budget, Ended, Explored, Mode, Moves, Nothing, Plant, Points, Settles, System, Watch, case, explore, one_draw,
+};
 use stillgate::reader;
 use stillgate::scenario::Scenario;
 
@@ -178,4 +180,36 @@ fn setup_of_a_flip_flop() {
     assert_eq!(outcomes("d = 1", "c = 1", 1, 0), ['0', '1']);
     assert_eq!(outcomes("d = 0", "c = 1", 9, 1), ['0']);
     assert_eq!(outcomes("d = 0", "c = 1", 7, 1), ['0', '1']);
+}
+
+/// Every state at rest that the exploration finds is shown by a run with delays that its trace gives.
+#[test]
+fn traces_become_cases_that_run() {
+    let latch = latch("[4, 8]", "[5, 9]");
+    let flip_flop = World::of(&format!(
+        "{}[[steps]]\nset = {{ d = 1 }}\n[[steps]]\nafter = [1, 12]\nset = {{ c = 1 }}\n[[steps]]\nset = {{ c = 0, d = 0 }}\nskew = [0, 9]\n",
+        FLIP_FLOP
+    ));
+    for (world, least) in [(latch, 2), (flip_flop, 4)] {
+        let found = world.explore(&Nothing, WITHOUT_TIES);
+        let program = Program::new(&world.scenario, &Control::default()).unwrap();
+        let mut shown = 0;
+        for (rest, node) in &found.rests {
+            let (trace, start) = (found.trace(*node), found.start(*node));
+            let system = System::of(&world.plant, &start, &trace, &one_draw(&world.scenario, &world.plant));
+            let Points::Some(point) = system.solve() else { panic!("{rest:?}: {system:?}") };
+            let case = case(&world.scenario, &world.plant, &system, &point, &trace, &start);
+            let mut run = stillgate::engine::Trace::default();
+            assert!(program.machine().run(&case.instance, &Control::default(), &mut run));
+            if rest.steps == 0 {
+                continue;
+            }
+            let window = &run.windows[rest.steps as usize - 1];
+            let values = &found.states[rest.state as usize];
+            let same = |net: usize| window.state.get(net) == stillgate::logic::Value::from(values[0] >> net & 1 == 1);
+            assert!((0..world.plant.nets.len()).all(same), "{rest:?} {trace:?}\n{:?}\n{window:?}", case.instance);
+            shown += 1;
+        }
+        assert!(shown >= least, "{shown}");
+    }
 }

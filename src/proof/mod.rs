@@ -4,12 +4,17 @@ mod explore;
 mod joint;
 mod key;
 mod plant;
+pub mod simplex;
+mod system;
 mod watch;
 mod watches;
+mod witness;
 pub mod zone;
 
 pub use explore::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, Rest, explore};
 pub use key::Mover;
 pub use plant::{NotCovered, Plant, PlantGate, PlantPlace, PlantStep, PlantWire, Ticks};
+pub use system::{Form, Point, Points, Row, Sense, System, Unknown};
 pub use watch::{Arrival, Block, Fate, Nothing, Watch};
+pub use witness::{Case, case, one_draw};
 pub use watches::{Moved, Moves, Settles, Shows};
