@@ -213,3 +213,32 @@ fn traces_become_cases_that_run() {
         assert!(shown >= least, "{shown}");
     }
 }
+
+#[test]
+fn demonstrations() {
+    let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("scenarios");
+    let mut names: Vec<_> = std::fs::read_dir(&folder).unwrap().map(|it| it.unwrap().path()).collect();
+    names.sort();
+    for path in names {
+        let text = std::fs::read_to_string(&path).unwrap();
+        let scenario = read(&text);
+        let program = Program::new(&scenario, &Control::default()).unwrap();
+        let asked = stillgate::findings::Asked::of(&scenario);
+        let started = std::time::Instant::now();
+        let proof = stillgate::proof::prove(&scenario, &program, &asked, &Default::default(), &Control::default());
+        println!("== {} zones {} {:?}", path.file_stem().unwrap().to_string_lossy(), proof.zones, started.elapsed());
+        for claim in &proof.claims {
+            let stillgate::proof::Subject::Question(q) = claim.subject else { continue };
+            let question = &asked.questions[q as usize];
+            println!(
+                "  {:12} {:?} {:?} net {:?} moment {:?} ties {} {:?}",
+                claim.call.word(), question.rule, question.name,
+                question.net.map(|net| scenario.circuit.name(net).to_string()),
+                question.moment.map(|m| scenario.stimulus.moments[m as usize].label.clone()), claim.but_for_ties, claim.reason
+            );
+        }
+        for window in &proof.windows {
+            println!("  window {} states {:?} settling {:?} {} {}", scenario.stimulus.moments[window.moment as usize].label, window.states.as_ref().map(Vec::len), window.settling.map(|(a,b)| (a.fs() as f64/1e6, b.fs() as f64/1e6)), window.settling_below, window.settling_but_for_ties);
+        }
+    }
+}

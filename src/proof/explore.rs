@@ -100,7 +100,8 @@ struct Node {
 pub struct Rest {
     /// Steps taken.
     pub steps: u32,
-    /// The state at rest in which its window began, by number; [`NOWHERE`] if it did not begin at rest.
+    /// The state at rest in which its window began (with the last step that changed an input here), by number; [`NOWHERE`]
+    /// if it did not begin at rest.
     pub origin: u32,
     /// Itself, by number.
     pub state: u32,
@@ -133,7 +134,7 @@ pub struct Explored {
     pub hits: BTreeMap<u32, u32>,
     /// Which node leads to which, where that was asked for.
     pub edges: Vec<(u32, u32)>,
-    /// Did a step come before rest, by number of the step?
+    /// Did a step that changes an input here come before rest, by number of the step?
     pub cut: Vec<bool>,
     nodes: Vec<Node>,
     movers: Vec<Mover>,
@@ -601,6 +602,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
         let before = key.values();
         let (watched, origin, rested) = (key.watch(), key.origin(), info.rest);
         let same_instant = tie == Tie::Same;
+        let touches = step && plant.steps[steps].set.iter().any(|(net, value)| bit(before, *net as usize) != *value);
         let block = Block {
             plant,
             before,
@@ -616,7 +618,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
         self.hits.clear();
         let hits = &mut self.hits;
         let (state, fates) = self.watch.block(watched, &block, &mut |hit| hits.push(hit));
-        let new_origin = match (step && !same_instant, rested) {
+        let new_origin = match (touches && !same_instant, rested) {
             (false, _) => origin,
             (true, false) => NOWHERE,
             (true, true) => {
@@ -624,7 +626,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
                 self.state_number(&before)
             }
         };
-        if step && !rested && !same_instant {
+        if touches && !rested && !same_instant {
             self.found.cut[steps] = true;
         }
         let mut next = KeyMut { words: &mut self.words, layout };
@@ -657,7 +659,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
                 Slot::Fired => 0,
                 Slot::Cool(gate) if cooling.contains(&gate) => 0,
                 Slot::Watch(clock) => match fates[clock as usize] {
-                    Fate::Keep => old.row(Slot::Watch(clock)),
+                    Fate::Keep(place) => old.row(Slot::Watch(place)),
                     Fate::Begin => 0,
                 },
                 slot => old.row(slot),
