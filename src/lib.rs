@@ -74,6 +74,7 @@ pub mod engine;
 pub mod findings;
 pub mod flow;
 pub mod instance;
+pub mod limit;
 pub mod logic;
 pub mod output;
 pub mod reader;

@@ -16,6 +16,7 @@ mod groups;
 mod hands_and_partners;
 mod hypercube;
 mod judges_agree;
+mod limits;
 mod malformed;
 mod outcomes_agree;
 mod outside;

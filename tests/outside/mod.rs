@@ -9,6 +9,7 @@ mod flow_tables;
 mod hazards;
 mod hundreds_of_gates;
 mod large_networks;
+mod limits;
 mod networks;
 mod random_networks;
 mod small_networks;

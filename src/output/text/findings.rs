@@ -14,7 +14,7 @@ const FULL: usize = 5;
 const LISTED: usize = 3;
 
 /// What a finding is about: `glitch static-0, open_lower, step together`.
-pub(super) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
+pub(in crate::output) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
     let named = words::subject(scenario, asked, subject);
     let mut text = named.kind.to_string();
     if wants_oscillation(asked, subject) {

@@ -7,6 +7,7 @@ mod check;
 mod conditions;
 mod findings;
 mod flow;
+mod limit;
 mod notes;
 mod paper;
 mod review;
@@ -18,6 +19,8 @@ mod sure;
 mod sweep;
 
 pub use check::check;
+pub(super) use findings::about;
+pub use limit::{limit, limit_map};
 pub use paper::Style;
 pub use review::review;
 pub use run::run;
