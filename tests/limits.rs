@@ -221,7 +221,8 @@ fn values_and_pairs_agree_with_files_that_say_so() {
 
 #[test]
 fn an_impossible_value_cuts_the_range_and_says_why() {
-    let text = GAP.replace("set = { a = 0 }", "set = { a = 0 }\nbounce = { lasting = 3, pulses = [1, 1] }");
+    let text = GAP.replace("set = { a = 0 }", "set = { a = 0 }\nbounce = { lasting = 3, pulses = [1, 1] }")
+        + "[sweep]\nsamples = 20\n";
     let report = search(&text, &["spacing", "b on"], -4, 16);
     assert_eq!((report.range.asked.0, report.range.legal.from), (-4 * NS, 3 * NS));
     let why = report.range.legal.below.unwrap();
@@ -238,7 +239,7 @@ fn a_range_is_chosen_from_the_scenario() {
     assert_eq!((report.range.legal.from, report.range.legal.to, report.range.given), (0, 10 * NS, false));
     let report = limit(&scenario, &search(&["lead", "a off", "b off"]), 1, &Control::default()).unwrap();
     assert_eq!(report.range.asked, (-4 * NS, 30 * NS));
-    assert_eq!(report.range.legal.from, 10 * NS, "it may not come after the step behind it");
+    assert_eq!(report.range.legal.from, 20 * NS, "it may not come after the step behind it");
 }
 
 #[test]
@@ -260,7 +261,7 @@ fn what_cannot_be_varied_is_refused_with_a_remedy() {
         (&["period", "a"], "has no clocks"),
         (&["skew", "a on"], "one input"),
         (&["lead", "a on", "a on"], "no distance from itself"),
-        (&["lag", "a on", "a of"], "did you mean `a off`?"),
+        (&["lag", "a on", "a offf"], "did you mean `a off`?"),
         (&[], "name what to vary"),
     ] {
         assert!(refused(words, &scenario).contains(part), "{words:?}: {}", refused(words, &scenario));
@@ -270,7 +271,8 @@ fn what_cannot_be_varied_is_refused_with_a_remedy() {
     assert!(refused(&["spacing", "b on"], &resting).contains("comes at rest"));
 
     let parameter = Parameter::named(&["spacing", "b on"], &scenario).unwrap();
-    for (from, to, part) in [(5, 5, "empty"), (6, 5, "reversed"), (-9, -4, "no value from -9 ns to -4 ns is possible")] {
+    for (from, to, part) in [(5, 5, "empty"), (6, 5, "reversed"), (-9, -4, "no value from -9 ns to -4 ns is possible")]
+    {
         let search = Search { from: Some(from * NS), to: Some(to * NS), ..Search::of(parameter) };
         match limit(&scenario, &search, 1, &Control::default()) {
             Err(LimitError::Bad(message)) => assert!(message.contains(part), "{message}"),

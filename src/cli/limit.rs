@@ -123,7 +123,5 @@ fn signed(text: &str, option: &str, scenario: &Scenario) -> Result<i64, Failure>
 
 /// A time, in fs; below 2^62.
 fn span(text: &str, option: &str, scenario: &Scenario) -> Result<u64, Failure> {
-    Span::parse(text, scenario.unit)
-        .map(Span::fs)
-        .map_err(|error| Failure::Bad(format!("`{option} {text}`: {error}")))
+    Span::parse(text, scenario.unit).map(Span::fs).map_err(|error| Failure::Bad(format!("`{option} {text}`: {error}")))
 }

@@ -262,7 +262,9 @@ fn all(scenario: &Scenario) -> Result<Parameter, LimitError> {
     let places = Places::of(&scenario.stimulus);
     match shortest(&scenario.stimulus, &places) {
         Some(_) => Ok(Parameter::SpacingOfAll),
-        None => bad("no two steps have a distance to vary: none is placed by `at` or `after` behind another".to_string()),
+        None => {
+            bad("no two steps have a distance to vary: none is placed by `at` or `after` behind another".to_string())
+        }
     }
 }
 
@@ -318,9 +320,9 @@ impl Find<'_> {
 
     fn net(&self, name: &str) -> Result<NetId, LimitError> {
         let circuit = &self.scenario.circuit;
-        let net = circuit.net(name).ok_or_else(|| {
-            unknown("net", name, nearest(name, circuit.nets().map(|net| circuit.name(net))), None)
-        })?;
+        let net = circuit
+            .net(name)
+            .ok_or_else(|| unknown("net", name, nearest(name, circuit.nets().map(|net| circuit.name(net))), None))?;
         match circuit.driver(net) {
             Some(_) => bad(format!("`{name}` is driven by a gate; only inputs are varied")),
             None => Ok(net),

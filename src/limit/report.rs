@@ -80,7 +80,17 @@ impl Point {
     pub(super) fn refused(value: i64, of: u64, why: String) -> Point {
         let outcome = Outcome::Refused;
         let (failing, not_judged) = (0, 0);
-        Point { value, outcome, failing, at_least: false, not_judged, of, interval: None, breach: None, refused: Some(why) }
+        Point {
+            value,
+            outcome,
+            failing,
+            at_least: false,
+            not_judged,
+            of,
+            interval: None,
+            breach: None,
+            refused: Some(why),
+        }
     }
 
     /// Does it pass?

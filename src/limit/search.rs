@@ -203,13 +203,14 @@ fn range(scenario: &Scenario, search: &Search, own: Option<i64>, longest: Option
     let (low, high) = (shown(from, scenario), shown(to, scenario));
     if from >= to {
         let what = if from == to { "empty" } else { "reversed" };
-        return Err(LimitError::Bad(format!("{words}: the range from {low} to {high} is {what}; write the smaller first")));
+        return Err(LimitError::Bad(format!(
+            "{words}: the range from {low} to {high} is {what}; write the smaller first"
+        )));
     }
     let why_not = |value: i64| variant(scenario, &[(parameter, value)]).err();
     let tried = grid(from, to, search.points.max(65)).into_iter();
-    let legal = legal((from, to), tried, why_not).map_err(|why| {
-        LimitError::Bad(format!("{words}: no value from {low} to {high} is possible: {why}"))
-    })?;
+    let legal = legal((from, to), tried, why_not)
+        .map_err(|why| LimitError::Bad(format!("{words}: no value from {low} to {high} is possible: {why}")))?;
     if legal.from == legal.to {
         let only = shown(legal.from, scenario);
         let why = legal.below.or(legal.above).unwrap_or_default();

@@ -3,8 +3,8 @@
 use std::collections::BTreeSet;
 
 use super::report::{Breach, Cause, Outcome, Point};
-use super::{LimitError, Parameter};
 use super::variant::variant;
+use super::{LimitError, Parameter};
 use crate::control::Control;
 use crate::engine::Program;
 use crate::findings::{Answers, Asked, Judge, Kind, Question, Reason, RuleKey};
@@ -51,10 +51,8 @@ pub(super) enum Stop {
 impl<'a> Trials<'a> {
     pub fn new(scenario: &'a Scenario, threads: usize, control: &'a Control) -> Result<Trials<'a>, LimitError> {
         let rest = match &scenario.begin {
-            Begin::AtRest { named } => {
-                statics::rest(&scenario.circuit, &scenario.stimulus.initial, named, control)
-                    .map_err(|error| LimitError::Bad(error.to_string()))?
-            }
+            Begin::AtRest { named } => statics::rest(&scenario.circuit, &scenario.stimulus.initial, named, control)
+                .map_err(|error| LimitError::Bad(error.to_string()))?,
             Begin::Random | Begin::Unknown => Bits::default(),
         };
         let own = Case { condition: None, scenario: scenario.clone(), asked: Asked::of(scenario) };
@@ -225,11 +223,7 @@ impl<'a> Trials<'a> {
 
     /// The case of a breach, so that it can be run again, after it was checked that it shows the breach in the scenario as
     /// it is in the file.
-    pub fn case_of(
-        &self,
-        values: &[(Parameter, i64)],
-        breach: &Breach,
-    ) -> Result<Option<(u64, Instance)>, LimitError> {
+    pub fn case_of(&self, values: &[(Parameter, i64)], breach: &Breach) -> Result<Option<(u64, Instance)>, LimitError> {
         let Ok(varied) = variant(self.scenario, values) else { return Ok(None) };
         let case = self.cases.iter().find(|case| case.condition == breach.condition).expect("it was swept");
         let scenario = self.of_case(case, &varied);

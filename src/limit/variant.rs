@@ -269,4 +269,3 @@ pub(super) fn middle(a: i64, b: i64) -> i64 {
 pub(super) fn shown(value: i64, scenario: &Scenario) -> String {
     format!("{} {}", Decimal::new(i128::from(value), scenario.unit), scenario.unit)
 }
-

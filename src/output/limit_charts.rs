@@ -14,11 +14,11 @@ use crate::scenario::Scenario;
 use crate::time::Span;
 
 /// Size of the picture, pixels.
-const SIZE: (u32, u32) = (820, 420);
+const SIZE: (u32, u32) = (820, 426);
 /// Height of the title, pixels.
 const HEAD: u32 = 34;
 /// Height of the notes below, pixels.
-const FOOT: u32 = 40;
+const FOOT: u32 = 46;
 /// Points with an interval that is shown as a bar, at most: more would be a smear.
 const MOST_BARS: usize = 200;
 /// Room for the label of the limit above the curve, pixels.
@@ -47,14 +47,12 @@ fn draw(root: &Area<'_>, scenario: &Scenario, report: &LimitReport) -> Drawn {
     root.draw(&Text::new(title, (12, 8), bold))?;
     let area = root.clone().shrink((0, HEAD), (SIZE.0, SIZE.1 - HEAD - FOOT));
     curve(&area, scenario, report, &parameter)?;
-    let notes = [
-        format!("Model: {}. {}.", model(scenario), draws(scenario, report.samples, report.alike)),
-        marks(report),
-    ];
+    let notes =
+        [format!("Model: {}. {}.", model(scenario), draws(scenario, report.samples, report.alike)), marks(report)];
     for (line, note) in notes.iter().enumerate() {
         let note = words::clean(note);
         let note = cut_end(&note, ink::SMALL, room).unwrap_or(note);
-        root.draw(&Text::new(note, (12, (SIZE.1 - FOOT + 2) as i32 + 16 * line as i32), small()))?;
+        root.draw(&Text::new(note, (12, (SIZE.1 - FOOT + 8) as i32 + 16 * line as i32), small()))?;
     }
     root.present()
 }
@@ -133,7 +131,9 @@ fn curve(area: &Area<'_>, scenario: &Scenario, report: &LimitReport, parameter: 
     chart.draw_series(closed.map(|point| Circle::new(at(point), 3, rgb(ink::INK).filled())))?;
     let square = |point: &Point| {
         let (line, fill) = (rgb(ink::INK).stroke_width(1), WHITE.filled());
-        EmptyElement::at(at(point)) + Rectangle::new([(-4, -4), (4, 4)], fill) + Rectangle::new([(-4, -4), (4, 4)], line)
+        EmptyElement::at(at(point))
+            + Rectangle::new([(-4, -4), (4, 4)], fill)
+            + Rectangle::new([(-4, -4), (4, 4)], line)
     };
     chart.draw_series(tried().filter(is_open).map(square))?;
 

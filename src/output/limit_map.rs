@@ -41,7 +41,8 @@ pub fn svg(scenario: &Scenario, report: &MapReport) -> String {
     let height = bottom + LINE * (present.len() as f64 + 1.0) + 12.0;
 
     let mut svg = String::new();
-    let mut put = |line: &str| svg.write_str(line).and_then(|()| svg.write_char('\n')).expect("a string takes all text");
+    let mut put =
+        |line: &str| svg.write_str(line).and_then(|()| svg.write_char('\n')).expect("a string takes all text");
     let alternative = alternative(scenario, report);
     put(&format!(
         "<svg xmlns=\"http://www.w3.org/2000/svg\" role=\"img\" aria-label=\"{}\" width=\"{total:.0}\" height=\"{height:.0}\" \
@@ -123,13 +124,10 @@ fn cell_svg(x: f64, y: f64, side: f64, outcome: Option<Outcome>) -> String {
     cell
 }
 
-/// Some of the values, evenly, both ends among them.
+/// Some of the values, evenly, from the first on.
 fn ticks(values: &[i64]) -> Vec<(usize, i64)> {
-    let last = values.len().saturating_sub(1);
-    let parts = last.clamp(1, TICKS - 1);
-    let mut indices: Vec<usize> = (0..=parts).map(|k| last * k / parts).collect();
-    indices.dedup();
-    indices.into_iter().filter_map(|index| values.get(index).map(|value| (index, *value))).collect()
+    let stride = values.len().div_ceil(TICKS).max(1);
+    values.iter().copied().enumerate().step_by(stride).collect()
 }
 
 fn unit(scenario: &Scenario, range: &Range) -> Unit {
@@ -153,7 +151,6 @@ fn escaped(text: &str) -> String {
 fn alternative(scenario: &Scenario, report: &MapReport) -> String {
     let (across, up) = (axis(scenario, &report.across.0), axis(scenario, &report.up.0));
     let each = Outcome::ALL.into_iter().filter(|outcome| report.count(*outcome) > 0);
-    let each: Vec<String> =
-        each.map(|outcome| format!("{} {}", report.count(outcome), outcome.words())).collect();
+    let each: Vec<String> = each.map(|outcome| format!("{} {}", report.count(outcome), outcome.words())).collect();
     format!("Pairs of {across} and {up}: {}.", each.join(", "))
 }

@@ -39,8 +39,7 @@ pub fn limit_map(scenario: &Scenario, asked: &Asked, report: &MapReport) -> Stri
     })
 }
 
-const COLUMNS: [&str; 9] =
-    ["outcome", "draws", "failing", "at_least", "share", "low", "high", "not_judged", "because"];
+const COLUMNS: [&str; 9] = ["outcome", "draws", "failing", "at_least", "share", "low", "high", "not_judged", "because"];
 
 fn figures(scenario: &Scenario, asked: &Asked, point: &Point) -> [String; 9] {
     let outcome = point.outcome.words().to_string();

@@ -93,7 +93,11 @@ pub(super) fn sentence(scenario: &Scenario, report: &LimitReport) -> String {
     match report.everywhere() {
         Some(true) => format!("{words}: passes everywhere {stretch}{of}: no rule depends on it there"),
         Some(false) => format!("{words}: passes nowhere {stretch}: even at the easy end it {}", at_easy(report)),
-        None => format!("{words}: no limit: at the easy end, {}, it {}; other values pass", value(scenario, report.range.easy_end()), at_easy(report)),
+        None => format!(
+            "{words}: no limit: at the easy end, {}, it {}; other values pass",
+            value(scenario, report.range.easy_end()),
+            at_easy(report)
+        ),
     }
 }
 

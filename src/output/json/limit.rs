@@ -128,8 +128,7 @@ pub fn limit(scenario: &Scenario, asked: &Asked, report: &LimitReport) -> String
     let exact = |fs: i64| Exact::signed(i128::from(fs), scenario.unit);
     let length = |fs: u64| Exact::signed(i128::from(fs), scenario.unit);
     let edge = |it: &crate::limit::Boundary| Edge { passes: exact(it.passes), fails: exact(it.fails) };
-    let stretch =
-        |it: &crate::limit::Stretch| Stretch { from: exact(it.from), to: exact(it.to), passes: it.passes };
+    let stretch = |it: &crate::limit::Stretch| Stretch { from: exact(it.from), to: exact(it.to), passes: it.passes };
     super::document(&Limit {
         format: super::FORMAT,
         unit: scenario.unit.name(),

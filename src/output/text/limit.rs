@@ -21,7 +21,11 @@ pub fn limit(scenario: &Scenario, asked: &Asked, report: &LimitReport, case: Opt
     let mut paper = page.paper();
     let tone = if report.limit.is_some() || report.everywhere() == Some(true) { Tone::Strong } else { Tone::Bad };
     paper.say(0, tone, &sentence(scenario, report));
-    paper.say(0, Tone::Plain, &format!("Model: {}. {}.", model(scenario), draws(scenario, report.samples, report.alike)));
+    paper.say(
+        0,
+        Tone::Plain,
+        &format!("Model: {}. {}.", model(scenario), draws(scenario, report.samples, report.alike)),
+    );
     if !report.alike {
         paper.say(0, Tone::Plain, "What passes was not seen to fail in these draws; that is no proof.");
     }
@@ -56,7 +60,9 @@ pub fn limit(scenario: &Scenario, asked: &Asked, report: &LimitReport, case: Opt
     super::more(&mut paper, report.stretches.len().saturating_sub(STRETCHES), "limit.csv");
     if report.not_followed > 0 {
         let many = words::many(report.not_followed as u64, "change");
-        let text = format!("{many} of passing and not passing not followed: the ends of those stretches are values of the scan.");
+        let text = format!(
+            "{many} of passing and not passing not followed: the ends of those stretches are values of the scan."
+        );
         paper.say(0, Tone::Unsure, &text);
     }
 
@@ -94,7 +100,11 @@ pub fn limit_map(scenario: &Scenario, asked: &Asked, report: &MapReport, page: &
     let passing = report.count(Outcome::Passes) as u64;
     let (passes, pairs) = (words::count(passing), words::many(tried, "pair"));
     paper.say(0, Tone::Strong, &format!("{a}, and {b}: {passes} of {pairs} of values pass"));
-    paper.say(0, Tone::Plain, &format!("Model: {}. {}.", model(scenario), draws(scenario, report.samples, report.alike)));
+    paper.say(
+        0,
+        Tone::Plain,
+        &format!("Model: {}. {}.", model(scenario), draws(scenario, report.samples, report.alike)),
+    );
     if report.interrupted() {
         paper.say(0, Tone::Unsure, "Interrupted: not all pairs were tried.");
     }
@@ -103,10 +113,8 @@ pub fn limit_map(scenario: &Scenario, asked: &Asked, report: &MapReport, page: &
         paper.say(2, Tone::Plain, "Too wide to be shown here; see limit-map.svg and limit-map.csv.");
     } else {
         for (y, row) in report.up.1.iter().zip(&report.cells).rev() {
-            let letters: Vec<String> = row
-                .iter()
-                .map(|cell| cell.as_ref().map_or(' ', |point| point.outcome.letter()).to_string())
-                .collect();
+            let letters: Vec<String> =
+                row.iter().map(|cell| cell.as_ref().map_or(' ', |point| point.outcome.letter()).to_string()).collect();
             paper.whole(2, &format!("{:>16}  {}", value(scenario, *y), letters.concat()));
         }
         let (first, last) = (report.across.1.first(), report.across.1.last());
@@ -143,7 +151,11 @@ fn say_beyond(paper: &mut Paper, scenario: &Scenario, asked: &Asked, beyond: &Be
     }
     if let Some((low, high)) = point.interval {
         let (low, high) = (words::percent(low), words::percent(high));
-        paper.say(4, Tone::Plain, &format!("failing in all: {} (95 %: {low} to {high})", words::percent(point.share())));
+        paper.say(
+            4,
+            Tone::Plain,
+            &format!("failing in all: {} (95 %: {low} to {high})", words::percent(point.share())),
+        );
     }
 }
 
