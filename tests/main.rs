@@ -21,5 +21,6 @@ mod outcomes_agree;
 mod outside;
 mod support;
 mod sweeps_agree;
+mod ties;
 mod verdicts;
 mod views_agree;

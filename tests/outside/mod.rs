@@ -14,4 +14,5 @@ mod random_networks;
 mod small_networks;
 mod stable_states;
 mod statistics;
+mod ties;
 mod words_of_nets;
