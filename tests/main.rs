@@ -22,5 +22,6 @@ mod outcomes_agree;
 mod outside;
 mod support;
 mod sweeps_agree;
+mod ties;
 mod verdicts;
 mod views_agree;

@@ -132,7 +132,8 @@ pub struct Running {
     pub folder: Folder,
     #[command(flatten)]
     pub draws: Draws,
-    /// Which case: typ, min, max, sample:N, or an instance file
+    /// Which case: typ, min, max, sample:N, one of these with all times moved by single femtoseconds (typ~1 to typ~8,
+    /// sample:N~3), or an instance file
     #[arg(long, value_name = "CASE", default_value = "typ")]
     pub delays: String,
     /// Under this condition of the scenario, in place of its own delays

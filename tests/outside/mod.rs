@@ -15,4 +15,5 @@ mod random_networks;
 mod small_networks;
 mod stable_states;
 mod statistics;
+mod ties;
 mod words_of_nets;
