@@ -27,6 +27,16 @@ impl Call {
             Call::NotCovered => "not-covered",
         }
     }
+
+    /// How much it speaks against a claim: the gravest of several answers is the answer.
+    pub const fn severity(self) -> u8 {
+        match self {
+            Call::Proved => 0,
+            Call::NotCovered => 1,
+            Call::Undecided => 2,
+            Call::Refuted => 3,
+        }
+    }
 }
 
 /// What it takes to break a claim.

@@ -9,7 +9,7 @@ use std::collections::BTreeMap;
 use std::time::{Duration, Instant};
 
 use super::claim::{Call, Claim, Proof, Subject, Variation, WindowProof};
-use super::explore::{Budget, Ended, Explored, Merge, Mode, NOWHERE, explore};
+use super::explore::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, explore};
 use super::key::bit;
 use super::plant::Plant;
 use super::system::{Points, System};
@@ -62,24 +62,24 @@ pub fn prove(scenario: &Scenario, program: &Program, asked: &Asked, spend: &Spen
     prover.proof
 }
 
-struct Prover<'a> {
-    scenario: &'a Scenario,
+pub(super) struct Prover<'a> {
+    pub(super) scenario: &'a Scenario,
     program: &'a Program,
-    asked: &'a Asked,
+    pub(super) asked: &'a Asked,
     budget: Budget,
-    proof: Proof,
+    pub(super) proof: Proof,
 }
 
 /// Why nothing can be said, and whether that is for want of time or by nature.
-struct Unsaid {
-    call: Call,
-    reason: String,
+pub(super) struct Unsaid {
+    pub call: Call,
+    pub reason: String,
 }
 
 /// A cone with the states that it begins in.
-struct World {
-    plant: Plant,
-    starts: Vec<Vec<bool>>,
+pub(super) struct World {
+    pub plant: Plant,
+    pub starts: Vec<Vec<bool>>,
 }
 
 /// What looking for something in a world came to.
@@ -91,7 +91,7 @@ enum Looked {
 }
 
 impl<'a> Prover<'a> {
-    fn world(&self, nets: &[NetId], spans: &[Span]) -> Result<World, Unsaid> {
+    pub(super) fn world(&self, nets: &[NetId], spans: &[Span]) -> Result<World, Unsaid> {
         let plant = Plant::of(self.scenario, nets, spans)
             .map_err(|what| Unsaid { call: Call::NotCovered, reason: what.to_string() })?;
         let starts = match self.program.start() {
@@ -113,7 +113,7 @@ impl<'a> Prover<'a> {
         Ok(World { plant, starts })
     }
 
-    fn explore<W: Watch>(&mut self, world: &World, watch: &W, mode: Mode) -> Result<Explored, Unsaid> {
+    pub(super) fn explore<W: Watch>(&mut self, world: &World, watch: &W, mode: Mode) -> Result<Explored, Unsaid> {
         let found = explore(&world.plant, &world.starts, watch, mode, &self.budget);
         self.proof.zones += found.zones;
         match found.ended {
@@ -160,7 +160,7 @@ impl<'a> Prover<'a> {
         Ok(Looked::Hits { found: Box::new(found), hits, ties })
     }
 
-    fn claim(&mut self, question: u32, call: Call) -> &mut Claim {
+    pub(super) fn claim(&mut self, question: u32, call: Call) -> &mut Claim {
         let claim = Claim {
             subject: Subject::Question(question),
             call,
@@ -173,7 +173,7 @@ impl<'a> Prover<'a> {
         self.proof.claims.last_mut().expect("it was just added")
     }
 
-    fn unsaid(&mut self, questions: &[u32], unsaid: &Unsaid) {
+    pub(super) fn unsaid(&mut self, questions: &[u32], unsaid: &Unsaid) {
         for question in questions {
             self.claim(*question, unsaid.call).reason = Some(unsaid.reason.clone());
         }
@@ -231,7 +231,7 @@ impl<'a> Prover<'a> {
                         self.whole_run(&world, &max, questions[0])?;
                         // the worse of both answers for the rule
                         if let Some(first) = first
-                            && self.proof.claims.last().is_some_and(|second| severity(first.call) > severity(second.call))
+                            && self.proof.claims.last().is_some_and(|second| first.call.severity() > second.call.severity())
                         {
                             *self.proof.claims.last_mut().expect("there is one") = first;
                         }
@@ -296,11 +296,11 @@ impl<'a> Prover<'a> {
                 }
                 Ok(())
             }
-            RuleKey::Reference => not_covered("the comparison with the reference is not part of the proof yet"),
-            RuleKey::CriticalRace => not_covered("races of whole states are not part of the proof yet"),
+            RuleKey::Reference => self.reference(questions),
+            RuleKey::CriticalRace => self.races(questions),
             RuleKey::Oscillation => not_covered("oscillation is not part of the proof yet"),
             RuleKey::When => not_covered("steps that wait for a pattern are not part of the proof yet"),
-            RuleKey::BeforeRest => not_covered("steps before rest are not part of the proof yet"),
+            RuleKey::BeforeRest => self.before_rest(questions),
         }
     }
 
@@ -319,7 +319,7 @@ impl<'a> Prover<'a> {
     }
 
     /// Questions about windows: hits of each say whether they break it.
-    fn by_window<W: Watch>(
+    pub(super) fn by_window<W: Watch>(
         &mut self,
         world: &World,
         watch: &W,
@@ -354,7 +354,7 @@ impl<'a> Prover<'a> {
     }
 
     /// The numbers of steps taken in the window of a question: from its step to the next that sets an input of the plant.
-    fn steps_of(&self, plant: &Plant, question: u32) -> std::ops::Range<u32> {
+    pub(super) fn steps_of(&self, plant: &Plant, question: u32) -> std::ops::Range<u32> {
         let moment = self.asked.questions[question as usize].moment;
         let stimulus = &self.scenario.stimulus;
         let first = match moment.map(|moment| &stimulus.moments[moment as usize].kind) {
@@ -421,7 +421,7 @@ impl<'a> Prover<'a> {
     }
 
     /// Questions about where nets rest. `good` says whether values (with the origin of the window) are allowed.
-    fn rests(&mut self, nets: &[NetId], questions: &[u32], good: &dyn Fn(&Plant, &[u64], u32) -> bool) -> Result<(), Unsaid> {
+    pub(super) fn rests(&mut self, nets: &[NetId], questions: &[u32], good: &dyn Fn(&Plant, &[u64], u32) -> bool) -> Result<(), Unsaid> {
         let world = self.world(nets, &[])?;
         let ranges: Vec<(u32, std::ops::Range<u32>)> =
             questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
@@ -471,31 +471,20 @@ impl<'a> Prover<'a> {
     }
 
     /// Traces break a question: makes one of them a case, runs it, and says what came of it.
-    fn refute(&mut self, world: &World, found: &Explored, ways: &[(u32, bool)], question: u32) {
+    pub(super) fn refute(&mut self, world: &World, found: &Explored, ways: &[(u32, bool)], question: u32) {
         let but_for_ties = ways.iter().all(|(_, tie)| *tie);
         let mut witness = None;
         let mut reason = None;
-        let mut only_cycles = true;
         for (node, _) in ways.iter().take(16) {
             let (trace, start) = (found.trace(*node), found.start(*node));
-            let shared = one_draw(self.scenario, &world.plant);
-            let system = System::of(&world.plant, &start, &trace, &shared);
-            match system.solve() {
-                Points::Some(point) => {
-                    only_cycles = false;
-                    let case = case(self.scenario, &world.plant, &system, &point, &trace, &start);
-                    if self.shows(&case.instance, question) {
-                        witness = Some(Box::new(case.instance));
-                        break;
-                    }
-                    reason = Some("delays were found, but their run does not show it".to_string());
+            match self.case_of(world, &trace, &start) {
+                Ok(instance) if self.shows(&instance, question) => {
+                    witness = Some(Box::new(instance));
+                    break;
                 }
-                Points::None => {
-                    reason.get_or_insert("no constant delays were found that show it".to_string());
-                }
-                Points::GaveUp => {
-                    only_cycles = false;
-                    reason = Some("the numbers of the linear program grew too large".to_string());
+                Ok(_) => reason = Some("delays were found, but their run does not show it".to_string()),
+                Err(why) => {
+                    reason.get_or_insert(why.to_string());
                 }
             }
         }
@@ -504,8 +493,24 @@ impl<'a> Prover<'a> {
         claim.but_for_ties = but_for_ties;
         claim.variation = Some(if refuted { Variation::Constant } else { Variation::Unknown });
         claim.witness = witness;
-        let _ = only_cycles;
         claim.reason = if refuted { None } else { reason };
+    }
+
+    /// A case that goes the way of a trace, or why there is none.
+    pub(super) fn case_of(&self, world: &World, trace: &[Fired], start: &[u64]) -> Result<Instance, &'static str> {
+        let shared = one_draw(self.scenario, &world.plant);
+        let system = System::of(&world.plant, start, trace, &shared);
+        match system.solve() {
+            Points::Some(point) => Ok(case(self.scenario, &world.plant, &system, &point, trace, start).instance),
+            Points::None => Err("no constant delays were found that show it"),
+            Points::GaveUp => Err("the numbers of the linear program grew too large"),
+        }
+    }
+
+    /// Everything that happens in the run of a case; `None` if it was stopped.
+    pub(super) fn run(&self, instance: &Instance) -> Option<Trace> {
+        let mut trace = Trace::default();
+        self.program.machine().run(instance, &self.budget.control, &mut trace).then_some(trace)
     }
 
     /// Does a run of this case break the question?
@@ -518,13 +523,20 @@ impl<'a> Prover<'a> {
         facts.iter().any(|fact| fact.breaks_rule && fact.subject.question == Some(question))
     }
 
-    /// What is known of whole windows.
-    fn windows(&mut self) {
-        let circuit = self.scenario.circuit.clone();
+    /// The gates of the circuit, those tied together by gates in one part.
+    pub(super) fn parts(&self) -> Vec<Vec<NetId>> {
+        let circuit = &*self.scenario.circuit;
         let mut parts: Vec<Vec<NetId>> = vec![Vec::new(); circuit.block_count()];
         for gate in circuit.gates() {
             parts[circuit.block(gate) as usize].push(circuit.net_of(gate));
         }
+        parts
+    }
+
+    /// What is known of whole windows.
+    fn windows(&mut self) {
+        let circuit = self.scenario.circuit.clone();
+        let parts = self.parts();
         let steps = self.scenario.stimulus.steps.len();
         let mut windows: Vec<Window> = vec![Window::default(); steps + 1];
         for nets in &parts {
@@ -653,15 +665,6 @@ impl Window {
 /// A partial state by the numbers of the plant.
 fn local(plant: &Plant, state: &Alternative) -> Vec<(u32, bool)> {
     state.iter().filter_map(|(net, value)| plant.local(*net).map(|net| (net, *value))).collect()
-}
-
-fn severity(call: Call) -> u8 {
-    match call {
-        Call::Proved => 0,
-        Call::NotCovered => 1,
-        Call::Undecided => 2,
-        Call::Refuted => 3,
-    }
 }
 
 /// Does no way lead back to where it came from?

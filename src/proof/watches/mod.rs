@@ -1,11 +1,13 @@
 //! Watches for single questions.
 
+mod early;
 mod edges;
 mod moves;
 mod settles;
 mod shows;
 mod swallows;
 
+pub use early::BeforeRest;
 pub use edges::{Answered, Apart, Edge, Width};
 pub use moves::{Moved, Moves};
 pub use settles::{Late, Settles};
