@@ -11,5 +11,5 @@ pub mod zone;
 pub use explore::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, Rest, explore};
 pub use key::Mover;
 pub use plant::{NotCovered, Plant, PlantGate, PlantPlace, PlantStep, PlantWire, Ticks};
-pub use watch::{Arrival, Block, Fate, Nothing, Watch};
+pub use watch::{Arrival, Block, Fate, Nothing, SAME, Watch};
 pub use watches::{Moved, Moves, Settles, Shows};

@@ -4,14 +4,17 @@
 use super::plant::Plant;
 use super::zone::Matrix;
 
-/// What becomes of a clock of a watch.
+/// Where a clock of a watch comes from.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Fate {
-    /// It goes on.
-    Keep,
-    /// It begins anew at 0.
+    /// It is the clock of this place before.
+    Keep(u8),
+    /// It begins at 0.
     Begin,
 }
+
+/// Both clocks stay what they are.
+pub const SAME: [Fate; 2] = [Fate::Keep(0), Fate::Keep(1)];
 
 /// A batch of events at one instant, or a part of one that can go first.
 #[derive(Clone, Copy, Debug)]
@@ -22,10 +25,10 @@ pub struct Block<'a> {
     pub before: &'a [u64],
     /// Values after.
     pub after: &'a [u64],
-    /// The step that is in it, by number.
+    /// The first step that is in it, by number.
     pub step: Option<usize>,
-    /// Is that step at the very instant of the one before it, and so in its window?
-    pub same_instant: bool,
+    /// How many steps come at that instant: they share a window.
+    pub steps: usize,
     /// Did nothing pend in the circuit before it?
     pub rested: bool,
     /// Do inputs change in it, of a step that came before?
@@ -45,10 +48,17 @@ impl Block<'_> {
         (before != after).then_some(after)
     }
 
-    /// Does the step in it change an input here, now or later?
+    /// Do the steps in it change an input here, now or later?
     pub fn touches(&self) -> bool {
-        let changes = |(net, value): &(u32, bool)| super::key::bit(self.before, *net as usize) != *value;
-        self.step.is_some_and(|step| self.plant.steps[step].set.iter().any(changes))
+        let Some(step) = self.step else { return false };
+        let steps = &self.plant.steps[step..step + self.steps];
+        // the last one to set an input decides
+        steps.iter().enumerate().any(|(at, step)| {
+            step.set.iter().any(|(net, value)| {
+                let again = steps[at + 1..].iter().any(|later| later.set.iter().any(|set| set.0 == *net));
+                !again && super::key::bit(self.before, *net as usize) != *value
+            })
+        })
     }
 }
 
@@ -78,15 +88,14 @@ pub trait Watch {
     /// The state at the start.
     fn start(&self, plant: &Plant, values: &[u64]) -> u32;
 
-    /// A block of changes: the next state, and what becomes of the clocks that run in it (by their place there). Where
-    /// the next state has fewer or other clocks, `Keep` keeps the clock of the same place.
+    /// A block of changes: the next state, and where the clocks that run in it come from.
     fn block(&self, state: u32, block: &Block<'_>, hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]);
 
     /// A state that lasts was arrived at.
     fn arrive(&self, _state: u32, _arrival: &Arrival<'_>, _hit: &mut dyn FnMut(u32)) {}
 
-    /// Time has passed: the zone may be cut to what is still of interest, and a clock that is of none any more may end
-    /// (the new state says so). False: nothing is left of interest.
+    /// Time has passed: the zone may be cut to what is still of interest, and the last clock may end if it is of none any
+    /// more (the new state says so). False: nothing is left of interest.
     fn elapsed(&self, state: u32, _zone: &mut Matrix, _row: usize, _hit: &mut dyn FnMut(u32)) -> (u32, bool) {
         (state, true)
     }
@@ -104,6 +113,6 @@ impl Watch for Nothing {
         0
     }
     fn block(&self, state: u32, _block: &Block<'_>, _hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
-        (state, [Fate::Keep; 2])
+        (state, SAME)
     }
 }

@@ -2,7 +2,7 @@
 
 use super::key::bit;
 use super::plant::Plant;
-use super::watch::{Arrival, Block, Fate, Watch};
+use super::watch::{Arrival, Block, Fate, SAME, Watch};
 use super::zone::limit;
 
 /// The transitions of a net in its own windows: from a step that touches it to the next that does. Judged are windows that
@@ -51,14 +51,14 @@ impl Watch for Moves {
 
     fn block(&self, state: u32, block: &Block<'_>, _hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
         let mut state = state;
-        if block.touches() && !block.same_instant {
+        if block.touches() {
             let before = if bit(block.before, self.net as usize) { Self::BEFORE } else { 0 };
             state = before | if block.rested { Self::JUDGED } else { 0 };
         }
         if state & Self::JUDGED != 0 && block.change(self.net).is_some() && state & 0xFFFF <= self.most {
             state += 1;
         }
-        (state, [Fate::Keep; 2])
+        (state, SAME)
     }
 
     fn arrive(&self, state: u32, arrival: &Arrival<'_>, hit: &mut dyn FnMut(u32)) {
@@ -86,7 +86,7 @@ impl Watch for Shows {
     }
 
     fn block(&self, state: u32, _block: &Block<'_>, _hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
-        (state, [Fate::Keep; 2])
+        (state, SAME)
     }
 
     fn arrive(&self, _state: u32, arrival: &Arrival<'_>, hit: &mut dyn FnMut(u32)) {
@@ -119,7 +119,7 @@ impl Watch for Settles {
         match block.step {
             Some(_) => (1, [Fate::Begin; 2]),
             None if block.late => (state, [Fate::Begin; 2]),
-            None => (state, [Fate::Keep; 2]),
+            None => (state, SAME),
         }
     }
 
