@@ -9,12 +9,16 @@
 
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
-use stillgate::control::Control;
-use stillgate::delay::DelayRange;
-use stillgate::proof::{Budget, Ended, Explored, Mode, Moves, NOWHERE, Nothing, Plant, Settles, Watch, explore};
-use stillgate::scenario::{Begin, Place, Scenario};
 use std::collections::BTreeSet;
 use std::sync::Arc;
+use stillgate::control::Control;
+use stillgate::delay::DelayRange;
+use stillgate::proof::zone::{self, Code};
+use stillgate::proof::{
+    Budget, Ended, Exact, Explored, Mode, Moves, NOWHERE, Nothing, Plant, RestVerdict, Semantics, Settles, Watch,
+    comes_to_rest, explore_under,
+};
+use stillgate::scenario::{Begin, Place, Scenario};
 
 use crate::support::grid::{Grid, NO_ORIGIN, Seen};
 use crate::support::small_nets::{SmallNet, every_network};
@@ -36,11 +40,51 @@ struct Met {
     hazards: u64,
     cycles: u64,
     tie_cycles: u64,
+    apart_in_zones_only: u64,
     cut: u64,
     finer: u64,
     too_many: u64,
     states: u64,
     zones: u64,
+}
+
+/// The right rules, or one of them made weaker.
+#[derive(Clone, Copy, Debug, PartialEq)]
+enum Rule {
+    Right,
+    /// Fires too early.
+    Due,
+    /// Cancels what is due in this batch.
+    Cancelled,
+    /// Judges states that do not last.
+    Lasts,
+    /// A step after what fired at its instant, two arrivals on a wire at once.
+    Later,
+    /// Excites again at once.
+    Cools,
+}
+
+type Rules = (Rule, Mode);
+
+const TOGETHER: Mode = Mode { merge: stillgate::proof::Merge::Inclusion, joint: true, edges: false, first_hit: false };
+const RIGHT: Rules = (Rule::Right, TOGETHER);
+
+impl Semantics for Rule {
+    fn due(&self, min: i64) -> i64 {
+        if *self == Rule::Due { min - 1 } else { Exact.due(min) }
+    }
+    fn cancelled(&self, max: i64) -> Code {
+        if *self == Rule::Cancelled { zone::at_most(max) } else { Exact.cancelled(max) }
+    }
+    fn lasts(&self, limit: Code) -> Code {
+        if *self == Rule::Lasts { limit } else { Exact.lasts(limit) }
+    }
+    fn later(&self) -> Code {
+        if *self == Rule::Later { zone::AT_MOST_ZERO } else { Exact.later() }
+    }
+    fn cools(&self) -> bool {
+        *self != Rule::Cools
+    }
 }
 
 fn budget() -> Budget {
@@ -65,17 +109,20 @@ impl Case {
         self.world.inputs.iter().map(|(_, bit)| *bit).chain(self.start.iter().copied()).collect()
     }
 
-    fn explore<W: Watch>(&self, plant: &Plant, watch: &W, mode: Mode) -> Explored {
+    fn start_of(&self, plant: &Plant) -> Vec<bool> {
         let all = self.full_start();
-        let start: Vec<bool> = plant.nets.iter().map(|net| all[net.index()]).collect();
-        explore(plant, &[start], watch, mode, &budget())
+        plant.nets.iter().map(|net| all[net.index()]).collect()
     }
 
-    fn said(&self, mode: Mode, settles: bool, met: &mut Met) -> Result<Said, String> {
+    fn explore<W: Watch>(&self, by: &Rules, plant: &Plant, watch: &W) -> Explored {
+        explore_under(&by.0, plant, &[self.start_of(plant)], watch, by.1, &budget())
+    }
+
+    fn said(&self, by: &Rules, settles: bool, met: &mut Met) -> Result<Said, String> {
         let scenario = self.scenario();
         let nets: Vec<_> = scenario.circuit.nets().collect();
         let plant = Plant::of(&scenario, &nets, &[fs(1)]).map_err(|error| error.to_string())?;
-        let found = self.explore(&plant, &Nothing, mode);
+        let found = self.explore(by, &plant, &Nothing);
         met.zones += found.zones;
         if found.ended != Ended::Complete {
             return Err(format!("{:?}", found.ended));
@@ -87,7 +134,7 @@ impl Case {
         for net in &nets[self.world.inputs.len()..] {
             let cone = Plant::of(&scenario, &[*net], &[fs(1)]).map_err(|error| error.to_string())?;
             let watch = Moves { net: cone.local(*net).unwrap(), most: 2 };
-            let found = self.explore(&cone, &watch, mode);
+            let found = self.explore(by, &cone, &watch);
             if found.ended != Ended::Complete {
                 return Err(format!("{:?}", found.ended));
             }
@@ -97,7 +144,7 @@ impl Case {
         let mut figures = Vec::new();
         if settles {
             let watch = Settles::default();
-            if self.explore(&plant, &watch, mode).ended == Ended::Complete {
+            if self.explore(by, &plant, &watch).ended == Ended::Complete {
                 figures = watch.figures.borrow().iter().map(|(s, [least, most])| (*s, (least.0, most.0))).collect();
             }
         }
@@ -111,7 +158,7 @@ impl Case {
     }
 
     /// Compares both; an error in words.
-    fn compare(&self, met: &mut Met) -> Result<(), String> {
+    fn compare(&self, by: &Rules, met: &mut Met) -> Result<(), String> {
         met.cases += 1;
         let most = 20_000;
         let mut fine = 2;
@@ -129,7 +176,7 @@ impl Case {
             return Ok(());
         };
         met.states += seen.states as u64;
-        let said = match self.said(Mode::default(), !seen.cycle, met) {
+        let said = match self.said(by, !seen.cycle, met) {
             Ok(said) => said,
             Err(why) => return Err(why),
         };
@@ -172,16 +219,42 @@ impl Case {
                 }
             }
         }
+        if matches!(by.0, Rule::Right) {
+            self.compare_cycles(&seen, met)?;
+        }
         met.cycles += u64::from(seen.cycle);
         met.tie_cycles += u64::from(seen.cycle && !seen.cycle_apart);
-        met.several += u64::from(said.rests.iter().any(|a| said.rests.iter().any(|b| (a.0, a.1) == (b.0, b.1) && a.2 != b.2)));
+        met.several +=
+            u64::from(said.rests.iter().any(|a| said.rests.iter().any(|b| (a.0, a.1) == (b.0, b.1) && a.2 != b.2)));
         met.hazards += u64::from(said.moves.iter().flatten().any(|it| it.2 >= 2));
         met.cut += u64::from(said.rests.iter().any(|it| it.1 == NO_ORIGIN && it.0 > 1));
         Ok(())
     }
 
+    /// Is there a run without end, and one without exact ties?
+    fn compare_cycles(&self, seen: &Seen, met: &mut Met) -> Result<(), String> {
+        let scenario = self.scenario();
+        let nets: Vec<_> = scenario.circuit.nets().collect();
+        let plant = Plant::of(&scenario, &nets, &[fs(1)]).map_err(|error| error.to_string())?;
+        match comes_to_rest(&plant, &[self.start_of(&plant)], &budget()) {
+            RestVerdict::Always if !seen.cycle => Ok(()),
+            RestVerdict::Cycles(cycles) if seen.cycle => {
+                let apart = cycles.iter().any(|cycle| cycle.needs_ties == Some(false));
+                if cycles.iter().any(|cycle| cycle.nets.is_empty() || cycle.needs_ties.is_none()) {
+                    return Err(format!("{cycles:?}"));
+                }
+                if seen.cycle_apart && !apart {
+                    return Err("oscillates without ties, and it is said not to".into());
+                }
+                met.apart_in_zones_only += u64::from(apart && !seen.cycle_apart);
+                Ok(())
+            }
+            other => Err(format!("on the grid a run without end: {}; said: {other:?}", seen.cycle)),
+        }
+    }
+
     fn check(&self, name: &str, met: &mut Met) {
-        if let Err(error) = self.compare(met) {
+        if let Err(error) = self.compare(&RIGHT, met) {
             panic!("{name}: {error}\n{}", written::scenario(&self.world, &self.start));
         }
     }
@@ -351,36 +424,7 @@ fn steps(world: &mut World, rng: &mut ChaCha8Rng, kind: Kind) {
 fn random_cases(seed: u64, count: u64, kind: Kind) -> Met {
     let mut met = Met::default();
     for stream in 0..count {
-        let mut rng = ChaCha8Rng::seed_from_u64(seed);
-        rng.set_stream(stream);
-        let (inputs, gates) = (rng.random_range(1..=2), rng.random_range(1..=3));
-        let net = SmallNet::random_of_two(&mut rng, inputs, gates);
-        let mut world = world(&net, &mut rng);
-        world.inputs.iter_mut().for_each(|(_, bit)| *bit = rng.random());
-        let mut in_order = Vec::new();
-        for gate in world.gates.clone() {
-            let mut pins = gate.pins.clone();
-            pins.sort();
-            pins.dedup();
-            for pin in pins {
-                if rng.random_bool(kind.wires) && in_order.len() < 2 {
-                    let one = range(&mut rng);
-                    in_order.push(rng.random());
-                    let other = if in_order[in_order.len() - 1] { one } else { range(&mut rng) };
-                    world.wires.push((pin, gate.name.clone(), [one, other]));
-                }
-            }
-        }
-        steps(&mut world, &mut rng, kind);
-        let cases = match kind.power_up {
-            true => {
-                world.begin = Begin::Random;
-                let start = (0..gates).map(|_| rng.random()).collect();
-                vec![Case { world, start, in_order }]
-            }
-            false => at_rest(&world).into_iter().map(|case| Case { in_order: in_order.clone(), ..case }).collect(),
-        };
-        for case in cases.into_iter().take(2) {
+        for case in random_case(seed, stream, kind) {
             case.check(&format!("seed {seed}, stream {stream}"), &mut met);
         }
     }
@@ -388,6 +432,40 @@ fn random_cases(seed: u64, count: u64, kind: Kind) -> Met {
     assert!(met.cases > count / 3 && met.too_many * 10 < met.cases, "{met:?}");
     assert!(met.hazards > count / 60, "{met:?}");
     met
+}
+
+/// A random world with one or two of its starts.
+fn random_case(seed: u64, stream: u64, kind: Kind) -> Vec<Case> {
+    let mut rng = ChaCha8Rng::seed_from_u64(seed);
+    rng.set_stream(stream);
+    let (inputs, gates) = (rng.random_range(1..=2), rng.random_range(1..=3));
+    let net = SmallNet::random_of_two(&mut rng, inputs, gates);
+    let mut world = world(&net, &mut rng);
+    world.inputs.iter_mut().for_each(|(_, bit)| *bit = rng.random());
+    let mut in_order = Vec::new();
+    for gate in world.gates.clone() {
+        let mut pins = gate.pins.clone();
+        pins.sort();
+        pins.dedup();
+        for pin in pins {
+            if rng.random_bool(kind.wires) && in_order.len() < 2 {
+                let one = range(&mut rng);
+                in_order.push(rng.random());
+                let other = if in_order[in_order.len() - 1] { one } else { range(&mut rng) };
+                world.wires.push((pin, gate.name.clone(), [one, other]));
+            }
+        }
+    }
+    steps(&mut world, &mut rng, kind);
+    let cases = match kind.power_up {
+        true => {
+            world.begin = Begin::Random;
+            let start = (0..gates).map(|_| rng.random()).collect();
+            vec![Case { world, start, in_order }]
+        }
+        false => at_rest(&world).into_iter().map(|case| Case { in_order: in_order.clone(), ..case }).collect(),
+    };
+    cases.into_iter().take(2).collect()
 }
 
 /// So many cases, or `STILLGATE_CASES` percent of that.
@@ -413,4 +491,26 @@ fn wires() {
 fn any_start() {
     random_cases(34, scaled(1500), Kind { wires: 0.0, timed: true, power_up: true, waits: false });
     random_cases(35, scaled(1000), Kind { wires: 0.4, timed: true, power_up: true, waits: false });
+}
+
+/// Each rule made weaker makes a difference that the comparison finds.
+#[test]
+fn a_weaker_rule_is_noticed() {
+    let kinds = [
+        Kind { wires: 0.0, timed: false, power_up: false, waits: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: false },
+        Kind { wires: 0.5, timed: true, power_up: false, waits: false },
+    ];
+    let apart = Mode { joint: false, ..TOGETHER };
+    let weaker = [Rule::Due, Rule::Cancelled, Rule::Lasts, Rule::Later, Rule::Cools].map(|rule| (rule, TOGETHER));
+    for rules in weaker.into_iter().chain([(Rule::Right, apart)]) {
+        let mut met = Met::default();
+        let noticed = (0..3000).position(|stream| {
+            kinds
+                .iter()
+                .any(|kind| random_case(41, stream, *kind).iter().any(|case| case.compare(&rules, &mut met).is_err()))
+        });
+        println!("{rules:?} noticed at {noticed:?}");
+        assert!(noticed.is_some(), "{rules:?}");
+    }
 }

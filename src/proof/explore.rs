@@ -132,7 +132,7 @@ pub struct Explored {
     pub states: Vec<Box<[u64]>>,
     /// Hits of the watch, each with the node that led to it first.
     pub hits: BTreeMap<u32, u32>,
-    /// Which node leads to which, where that was asked for.
+    /// Which node leads to which, where that was asked for; one that lies in a later one leads to that.
     pub edges: Vec<(u32, u32)>,
     /// Did a step that changes an input here come before rest, by number of the step?
     pub cut: Vec<bool>,
@@ -163,6 +163,21 @@ impl Explored {
         blocks
     }
 
+    /// How many nodes there are.
+    pub(super) fn nodes(&self) -> usize {
+        self.nodes.len()
+    }
+
+    /// The values of all signals at a node.
+    pub(super) fn values(&self, node: u32) -> Vec<u64> {
+        self.key(self.nodes[node as usize].key).values().to_vec()
+    }
+
+    /// Steps taken at a node.
+    pub(super) fn steps(&self, node: u32) -> usize {
+        self.key(self.nodes[node as usize].key).steps()
+    }
+
     /// The values of the signals where a trace begins.
     pub fn start(&self, node: u32) -> Vec<u64> {
         let mut at = node;
@@ -173,9 +188,55 @@ impl Explored {
     }
 }
 
+/// The rules on which an exploration rests. [`Exact`] has them as they must be; others are of use to show that tests would
+/// notice if one of them were wrong.
+pub trait Semantics {
+    /// From when on something with this least delay may fire.
+    fn due(&self, min: i64) -> i64 {
+        min
+    }
+    /// How old the event of a gate with this greatest delay may be when it is cancelled: at its deadline it would have
+    /// fired in this very batch.
+    fn cancelled(&self, max: i64) -> zone::Code {
+        zone::below(max)
+    }
+    /// The bound under which a state lasts whose clock may run up to this one.
+    fn lasts(&self, limit: zone::Code) -> zone::Code {
+        zone::strictly(limit)
+    }
+    /// The bound on the constant less a clock that must have run for a while: a step after what fired before it, an
+    /// arrival after the one before it, a late input after its step.
+    fn later(&self) -> zone::Code {
+        zone::BELOW_ZERO
+    }
+    /// Must a gate that was disabled stay so for a while, if what could excite it again could have come together with
+    /// what disabled it?
+    fn cools(&self) -> bool {
+        true
+    }
+}
+
+/// The semantics of the engine.
+#[derive(Clone, Copy, Debug, Default)]
+pub struct Exact;
+
+impl Semantics for Exact {}
+
 /// Explores a plant from start states (values of inputs and gates; wires have those of their nets).
 pub fn explore<W: Watch>(plant: &Plant, starts: &[Vec<bool>], watch: &W, mode: Mode, budget: &Budget) -> Explored {
-    let mut explorer = Explorer::new(plant, watch, mode, budget);
+    explore_under(&Exact, plant, starts, watch, mode, budget)
+}
+
+/// Explores a plant under given rules.
+pub fn explore_under<W: Watch, S: Semantics>(
+    semantics: &S,
+    plant: &Plant,
+    starts: &[Vec<bool>],
+    watch: &W,
+    mode: Mode,
+    budget: &Budget,
+) -> Explored {
+    let mut explorer = Explorer::new(semantics, plant, watch, mode, budget);
     for start in starts {
         explorer.begin(start);
     }
@@ -205,7 +266,8 @@ struct Known {
     joint: Vec<Joint>,
 }
 
-struct Explorer<'a, W> {
+struct Explorer<'a, W, S> {
+    semantics: &'a S,
     plant: &'a Plant,
     watch: &'a W,
     mode: Mode,
@@ -227,8 +289,8 @@ struct Explorer<'a, W> {
     hits: Vec<u32>,
 }
 
-impl<'a, W: Watch> Explorer<'a, W> {
-    fn new(plant: &'a Plant, watch: &'a W, mode: Mode, budget: &'a Budget) -> Self {
+impl<'a, W: Watch, S: Semantics> Explorer<'a, W, S> {
+    fn new(semantics: &'a S, plant: &'a Plant, watch: &'a W, mode: Mode, budget: &'a Budget) -> Self {
         let layout = Layout::of(plant);
         let found = Explored {
             ended: Ended::Complete,
@@ -245,6 +307,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
             layout,
         };
         Explorer {
+            semantics,
             plant,
             watch,
             mode,
@@ -356,7 +419,8 @@ impl<'a, W: Watch> Explorer<'a, W> {
             self.try_fire(node, &[]);
             return;
         }
-        let reach = |agent: &Agent| self.matrices[at + agent.row * size] >= zone::at_most(agent.min);
+        let reach =
+            |agent: &Agent| self.matrices[at + agent.row * size] >= zone::at_most(self.semantics.due(agent.min));
         let able: Vec<usize> = (0..info.agents.len()).filter(|i| reach(&info.agents[*i])).collect();
         let agents: Vec<Agent> = able.iter().map(|i| info.agents[*i]).collect();
         for agent in &agents {
@@ -541,15 +605,15 @@ impl<'a, W: Watch> Explorer<'a, W> {
         }
         for agent in agents {
             let able = match agent.mover {
-                Mover::Late(_) => self.work.bound(0, agent.row, zone::BELOW_ZERO),
-                _ => self.work.at_least(agent.row, agent.min),
+                Mover::Late(_) => self.work.bound(0, agent.row, self.semantics.later()),
+                _ => self.work.at_least(agent.row, self.semantics.due(agent.min)),
             };
             // arrivals on one wire come one after the other
             let apart = match agent.mover {
                 Mover::Arrival(wire) if key.apart(wire as usize) => info.row(Slot::Apart(wire)),
                 _ => 0,
             };
-            if !able || apart > 0 && !self.work.bound(0, apart, zone::BELOW_ZERO) {
+            if !able || apart > 0 && !self.work.bound(0, apart, self.semantics.later()) {
                 return;
             }
         }
@@ -558,7 +622,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
             let fired = info.row(Slot::Fired);
             let since = if steps > 0 { info.row(Slot::Since) } else { 0 };
             for row in [fired, since] {
-                if row > 0 && !self.work.bound(0, row, zone::BELOW_ZERO) {
+                if row > 0 && !self.work.bound(0, row, self.semantics.later()) {
                     return;
                 }
             }
@@ -590,7 +654,8 @@ impl<'a, W: Watch> Explorer<'a, W> {
                 let row = info.row(Slot::Flight(w as u32, place));
                 (row, key::flight_delay(plant, key.values(), w, place))
             };
-            let mut apart = key.apart(w) && !arrives && self.work.at(0, info.row(Slot::Apart(w as u32))) == zone::AT_MOST_ZERO;
+            let mut apart =
+                key.apart(w) && !arrives && self.work.at(0, info.row(Slot::Apart(w as u32))) == zone::AT_MOST_ZERO;
             if arrives && flights > 0 {
                 let (row, delay) = due(1);
                 apart = self.work.may_reach(row, delay.min);
@@ -637,7 +702,8 @@ impl<'a, W: Watch> Explorer<'a, W> {
                 && !bit(&excited, gate as usize)
                 && !movers.contains(&agent.mover)
             {
-                if !self.work.bound(agent.row, 0, zone::below(gate_max(plant, key.values(), gate as usize))) {
+                let most = self.semantics.cancelled(gate_max(plant, key.values(), gate as usize));
+                if !self.work.bound(agent.row, 0, most) {
                     return;
                 }
                 self.disabled.push((gate, agent.row));
@@ -647,7 +713,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
         for (slot, row) in info.slots.iter().zip(1..) {
             if let Slot::Cool(gate) = slot
                 && bit(&excited, *gate as usize)
-                && !self.work.bound(0, row, zone::BELOW_ZERO)
+                && !self.work.bound(0, row, self.semantics.later())
             {
                 return;
             }
@@ -685,8 +751,9 @@ impl<'a, W: Watch> Explorer<'a, W> {
                 next.set_cools(gate as usize, cools);
             }
         }
+        let cools = self.semantics.cools();
         let cooling: Vec<u32> =
-            self.disabled.iter().map(|(gate, _)| *gate).filter(|gate| could_excite(*gate)).collect();
+            self.disabled.iter().map(|(gate, _)| *gate).filter(|gate| cools && could_excite(*gate)).collect();
         for gate in &cooling {
             next.set_cools(*gate as usize, true);
         }
@@ -768,7 +835,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
         let key = self.found.key(number);
         let (state, rest, steps, row) = (key.watch(), info.rest, key.steps(), info.watch_row);
         self.lasting.load(self.entry.size, &self.entry.bounds);
-        let lasting = info.limits.iter().all(|(row, most)| self.lasting.bound(*row, 0, zone::strictly(*most)));
+        let lasting = info.limits.iter().all(|(row, most)| self.lasting.bound(*row, 0, self.semantics.lasts(*most)));
         if lasting {
             let arrival = Arrival { plant: self.plant, values: key.values(), rest, steps, zone: &self.lasting, row };
             let hits = &mut self.hits;
@@ -840,6 +907,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
         let mut nodes = std::mem::take(&mut self.known.nodes[number as usize]);
         let mut known = None;
         let mut joined = false;
+        let next = self.found.nodes.len() as u32;
         nodes.retain(|node| {
             let at = self.found.nodes[*node as usize].at;
             let kept = &mut self.matrices[at..at + size];
@@ -855,6 +923,10 @@ impl<'a, W: Watch> Explorer<'a, W> {
                 }
                 Merge::Inclusion if zone::within(kept, &self.entry.bounds) => {
                     self.found.nodes[*node as usize].gone = true;
+                    if self.mode.edges {
+                        // it leads on as the larger one does, which is the next node
+                        self.found.edges.push((*node, next));
+                    }
                     false
                 }
                 Merge::Inclusion => true,

@@ -90,8 +90,10 @@ fn signals(plant: &Plant, key: Key<'_>, agent: &Agent) -> Vec<(u32, bool)> {
             let late = plant.steps[..taken].last().filter(|_| key.skew() != 0);
             let late = late.into_iter().flat_map(|step| step.set.iter().enumerate());
             let late = late.filter(|(entry, _)| key.skew() >> entry & 1 == 1).map(|(_, set)| *set);
-            late.chain(plant.steps[taken..taken + agent.steps as usize].iter().flat_map(|step| step.set.iter().copied()))
-                .collect()
+            late.chain(
+                plant.steps[taken..taken + agent.steps as usize].iter().flat_map(|step| step.set.iter().copied()),
+            )
+            .collect()
         }
         Mover::Late(entry) => vec![plant.steps[key.steps() - 1].set[entry as usize]],
     }

@@ -143,12 +143,7 @@ impl Grid {
             set: set.iter().map(|(name, bit)| (net(name), *bit)).collect(),
             skew: step.skew.map_or(0, |skew| skew.max.fs() * fine),
         });
-        Grid {
-            inputs,
-            gates: world.gates.iter().map(gate).collect(),
-            wires: wires.collect(),
-            steps: steps.collect(),
-        }
+        Grid { inputs, gates: world.gates.iter().map(gate).collect(), wires: wires.collect(), steps: steps.collect() }
     }
 
     fn nets(&self) -> usize {
