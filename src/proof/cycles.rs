@@ -38,40 +38,42 @@ pub struct Cycle {
 }
 
 /// Does every window come to rest, from any of these start states? Where one does not, it is also found out whether a
-/// cycle is left when nothing happens together. Each of up to four explorations may spend the whole budget.
+/// cycle is left when nothing happens together. Each of a few explorations may spend the whole budget; if one of them ends
+/// early, the cycles found are real, but there may be others.
 pub fn comes_to_rest(plant: &Plant, starts: &[Vec<bool>], budget: &Budget) -> RestVerdict {
-    let mut cycles = match cycles(plant, starts, true, budget) {
-        Ok(found) if found.is_empty() => return RestVerdict::Always,
-        Ok(found) => found,
-        Err(ended) => return RestVerdict::Undecided(ended),
-    };
-    let apart = self::cycles(plant, starts, false, budget);
+    let (mut cycles, ended) = cycles(plant, starts, true, budget);
+    if cycles.is_empty() {
+        return if ended == Ended::Complete { RestVerdict::Always } else { RestVerdict::Undecided(ended) };
+    }
+    let (apart, ended) = self::cycles(plant, starts, false, budget);
     for cycle in &mut cycles {
-        cycle.needs_ties = match &apart {
-            Ok(apart) => Some(apart.iter().all(|it| it.steps != cycle.steps)),
-            Err(_) => None,
-        };
+        let found = apart.iter().any(|it| it.steps == cycle.steps);
+        cycle.needs_ties = (found || ended == Ended::Complete).then_some(!found);
     }
     RestVerdict::Cycles(cycles)
 }
 
-/// The real cycles, one for each number of steps taken; with or without things that happen together.
-fn cycles(plant: &Plant, starts: &[Vec<bool>], joint: bool, budget: &Budget) -> Result<Vec<Cycle>, Ended> {
-    for merge in [Merge::Inclusion, Merge::Equality] {
-        let mode = Mode { merge, joint, edges: true, first_hit: false };
+/// Real cycles, one for each number of steps taken, with or without things that happen together; and whether they are all.
+fn cycles(plant: &Plant, starts: &[Vec<bool>], joint: bool, budget: &Budget) -> (Vec<Cycle>, Ended) {
+    let mode = Mode { joint, edges: true, ..Mode::default() };
+    let found = explore(plant, starts, &Nothing, mode, budget);
+    if found.ended != Ended::Complete {
+        return (Vec::new(), found.ended);
+    }
+    if trimmed(&found).1.is_empty() {
+        return (Vec::new(), Ended::Complete);
+    }
+    // most real cycles show soon; whatever comes back in a part of the graph is a cycle of the whole
+    let soon = Budget { zones: budget.zones.min(1000 + 20 * found.zones), ..budget.clone() };
+    let mode = Mode { merge: Merge::Equality, ..mode };
+    for budget in [&soon, budget] {
         let found = explore(plant, starts, &Nothing, mode, budget);
-        if found.ended != Ended::Complete {
-            return Err(found.ended);
-        }
         let (leads, lasting) = trimmed(&found);
-        if lasting.is_empty() {
-            return Ok(Vec::new());
-        }
-        if merge == Merge::Equality {
-            return Ok(first_cycles(plant, &found, &leads, &lasting));
+        if !lasting.is_empty() || !matches!(found.ended, Ended::Zones) {
+            return (first_cycles(plant, &found, &leads, &lasting), found.ended);
         }
     }
-    unreachable!("the second exploration ends it")
+    (Vec::new(), Ended::Zones)
 }
 
 /// For each node those that it leads to, and the nodes that lie on cycles or between two of them.
