@@ -3,7 +3,9 @@
 use stillgate::circuit::NetId;
 use stillgate::control::Control;
 use stillgate::engine::Program;
-use stillgate::proof::{Budget, Ended, Explored, Mode, Moves, Nothing, Plant, Settles, Watch, explore};
+use stillgate::proof::{
+    Budget, Ended, Explored, Mode, Moves, Nothing, Plant, Points, Settles, System, Watch, case, explore, one_draw,
+};
 use stillgate::reader;
 use stillgate::scenario::Scenario;
 
@@ -178,4 +180,65 @@ fn setup_of_a_flip_flop() {
     assert_eq!(outcomes("d = 1", "c = 1", 1, 0), ['0', '1']);
     assert_eq!(outcomes("d = 0", "c = 1", 9, 1), ['0']);
     assert_eq!(outcomes("d = 0", "c = 1", 7, 1), ['0', '1']);
+}
+
+/// Every state at rest that the exploration finds is shown by a run with delays that its trace gives.
+#[test]
+fn traces_become_cases_that_run() {
+    let latch = latch("[4, 8]", "[5, 9]");
+    let flip_flop = World::of(&format!(
+        "{}[[steps]]\nset = {{ d = 1 }}\n[[steps]]\nafter = [1, 12]\nset = {{ c = 1 }}\n[[steps]]\nset = {{ c = 0, d = 0 }}\nskew = [0, 9]\n",
+        FLIP_FLOP
+    ));
+    for (world, least) in [(latch, 2), (flip_flop, 4)] {
+        let found = world.explore(&Nothing, WITHOUT_TIES);
+        let program = Program::new(&world.scenario, &Control::default()).unwrap();
+        let mut shown = 0;
+        for (rest, node) in &found.rests {
+            let (trace, start) = (found.trace(*node), found.start(*node));
+            let system = System::of(&world.plant, &start, &trace, &one_draw(&world.scenario, &world.plant));
+            let Points::Some(point) = system.solve() else { panic!("{rest:?}: {system:?}") };
+            let case = case(&world.scenario, &world.plant, &system, &point, &trace, &start);
+            let mut run = stillgate::engine::Trace::default();
+            assert!(program.machine().run(&case.instance, &Control::default(), &mut run));
+            if rest.steps == 0 {
+                continue;
+            }
+            let window = &run.windows[rest.steps as usize - 1];
+            let values = &found.states[rest.state as usize];
+            let same = |net: usize| window.state.get(net) == stillgate::logic::Value::from(values[0] >> net & 1 == 1);
+            assert!((0..world.plant.nets.len()).all(same), "{rest:?} {trace:?}\n{:?}\n{window:?}", case.instance);
+            shown += 1;
+        }
+        assert!(shown >= least, "{shown}");
+    }
+}
+
+#[test]
+fn demonstrations() {
+    let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("scenarios");
+    let mut names: Vec<_> = std::fs::read_dir(&folder).unwrap().map(|it| it.unwrap().path()).collect();
+    names.sort();
+    for path in names {
+        let text = std::fs::read_to_string(&path).unwrap();
+        let scenario = read(&text);
+        let program = Program::new(&scenario, &Control::default()).unwrap();
+        let asked = stillgate::findings::Asked::of(&scenario);
+        let started = std::time::Instant::now();
+        let proof = stillgate::proof::prove(&scenario, &program, &asked, &Default::default(), &Control::default());
+        println!("== {} zones {} {:?}", path.file_stem().unwrap().to_string_lossy(), proof.zones, started.elapsed());
+        for claim in &proof.claims {
+            let stillgate::proof::Subject::Question(q) = claim.subject else { continue };
+            let question = &asked.questions[q as usize];
+            println!(
+                "  {:12} {:?} {:?} net {:?} moment {:?} ties {} {:?}",
+                claim.call.word(), question.rule, question.name,
+                question.net.map(|net| scenario.circuit.name(net).to_string()),
+                question.moment.map(|m| scenario.stimulus.moments[m as usize].label.clone()), claim.but_for_ties, claim.reason
+            );
+        }
+        for window in &proof.windows {
+            println!("  window {} states {:?} settling {:?} {} {}", scenario.stimulus.moments[window.moment as usize].label, window.states.as_ref().map(Vec::len), window.settling.map(|(a,b)| (a.fs() as f64/1e6, b.fs() as f64/1e6)), window.settling_below, window.settling_but_for_ties);
+        }
+    }
 }

@@ -226,7 +226,7 @@ fn check(world: &World, rest: &Bits, rng: &mut ChaCha8Rng, met: &mut Met) -> Res
 fn every_run_lies_in_the_zones() {
     let percent: u64 = std::env::var("STILLGATE_CASES").ok().and_then(|text| text.parse().ok()).unwrap_or(100);
     let mut met = Met::default();
-    for stream in 0..2000 * percent / 100 {
+    for stream in 0..400 * percent / 100 {
         let mut rng = ChaCha8Rng::seed_from_u64(51);
         rng.set_stream(stream);
         let world = world(&mut rng);
@@ -239,6 +239,5 @@ fn every_run_lies_in_the_zones() {
             }
         }
     }
-    println!("{met:?}");
     assert!(met.skipped * 10 < met.worlds && met.figures > met.worlds && met.at_bound > met.worlds / 4, "{met:?}");
 }

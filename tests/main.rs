@@ -4,6 +4,9 @@
 
 mod boards;
 mod bounded;
+mod bounded_agrees;
+mod bounded_cycles;
+mod bounded_simulated;
 mod commands;
 mod conditions;
 mod coverage;
@@ -17,10 +20,12 @@ mod groups;
 mod hands_and_partners;
 mod hypercube;
 mod judges_agree;
+mod limits;
 mod malformed;
 mod outcomes_agree;
 mod outside;
 mod support;
 mod sweeps_agree;
+mod ties;
 mod verdicts;
 mod views_agree;

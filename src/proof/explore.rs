@@ -556,7 +556,7 @@ impl<'a, W: Watch, S: Semantics> Explorer<'a, W, S> {
         let key = self.found.key(key);
         let mut taken = key.steps();
         self.words.copy_from_slice(key.words);
-        let mut flip = |words: &mut [u64], signal: usize| {
+        let flip = |words: &mut [u64], signal: usize| {
             let value = !bit(words, signal);
             put(words, signal, value);
         };
@@ -678,7 +678,7 @@ impl<'a, W: Watch, S: Semantics> Explorer<'a, W, S> {
                         return;
                     }
                 }
-                flights = flights - over + u8::from(over % 2 == 0);
+                flights = flights - over + u8::from(over.is_multiple_of(2));
             }
             if flights > key::FLIGHTS {
                 self.end(Ended::InFlight);

@@ -37,7 +37,6 @@ pub struct GridWire {
     delay: [(u64, u64); 2],
     /// May no change overtake another?
     in_order: bool,
-    reader: usize,
 }
 
 #[derive(Clone, Debug)]
@@ -123,11 +122,10 @@ impl Grid {
                 .collect();
             GridGate { table: table(&gate.function, pins.len()), pins, delay: gate.delay.map(range) }
         };
-        let wires = world.wires.iter().zip(in_order).map(|((from, to, delay), in_order)| GridWire {
+        let wires = world.wires.iter().zip(in_order).map(|((from, _, delay), in_order)| GridWire {
             net: net(from),
             delay: delay.map(range),
             in_order: *in_order,
-            reader: net(to) - inputs,
         });
         let steps = world.steps.iter().zip(&world.set).map(|(step, set)| GridStep {
             place: match &step.place {

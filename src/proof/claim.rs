@@ -1,0 +1,106 @@
+//! What a proof says, in ids and exact times; names and texts are made where results are written.
+
+use crate::instance::Instance;
+use crate::logic::State;
+use crate::time::Span;
+
+/// How a claim came out.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
+pub enum Call {
+    /// It holds for every delay in the ranges.
+    Proved,
+    /// It does not: delays in the ranges break it.
+    Refuted,
+    /// Neither could be shown.
+    Undecided,
+    /// The method does not speak of it.
+    NotCovered,
+}
+
+impl Call {
+    /// The word used in every file and text.
+    pub const fn word(self) -> &'static str {
+        match self {
+            Call::Proved => "proved",
+            Call::Refuted => "refuted",
+            Call::Undecided => "undecided",
+            Call::NotCovered => "not-covered",
+        }
+    }
+}
+
+/// What it takes to break a claim.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
+pub enum Variation {
+    /// Constant delays do.
+    Constant,
+    /// Only delays that change from one firing to the next do.
+    CycleToCycle,
+    /// Constant delays that do were not found, nor was shown that there are none.
+    Unknown,
+}
+
+impl Variation {
+    /// The word used in every file and text.
+    pub const fn word(self) -> &'static str {
+        match self {
+            Variation::Constant => "constant",
+            Variation::CycleToCycle => "cycle-to-cycle",
+            Variation::Unknown => "unknown",
+        }
+    }
+}
+
+/// What is claimed.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
+pub enum Subject {
+    /// The question of this number (in [`crate::findings::Asked::questions`]) is answered well in every run.
+    Question(u32),
+    /// The window of this moment comes to rest in every run.
+    Rests(u32),
+}
+
+/// One claim.
+#[derive(Clone, Debug)]
+pub struct Claim {
+    /// What is claimed.
+    pub subject: Subject,
+    /// How it came out.
+    pub call: Call,
+    /// Refuted only by exactly equal times.
+    pub but_for_ties: bool,
+    /// For a refuted claim, what it takes.
+    pub variation: Option<Variation>,
+    /// For a refuted claim a case that shows it when it is run.
+    pub witness: Option<Box<Instance>>,
+    /// Why it is undecided or not covered; or what of the scenario was left out in refuting it.
+    pub reason: Option<String>,
+}
+
+/// What is known of the window of one moment.
+#[derive(Clone, Debug)]
+pub struct WindowProof {
+    /// The moment.
+    pub moment: u32,
+    /// Every state in which it can come to rest, in order; `None` if not known, or too many.
+    pub states: Option<Vec<State>>,
+    /// Least and greatest settling time; `None` if not known, or there is none.
+    pub settling: Option<(Span, Span)>,
+    /// Is the greatest time only come near to?
+    pub settling_below: bool,
+    /// Does the greatest leave out what takes exactly equal times?
+    pub settling_but_for_ties: bool,
+}
+
+/// What a proof says.
+#[derive(Clone, Debug, Default)]
+pub struct Proof {
+    /// The claims, in the order of the questions.
+    pub claims: Vec<Claim>,
+    /// The windows, in the order of their moments.
+    pub windows: Vec<WindowProof>,
+    /// Zones that were kept, in all explorations.
+    pub zones: u64,
+    /// What was left out, in whole sentences.
+    pub notes: Vec<String>,
+}

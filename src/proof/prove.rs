@@ -1,0 +1,688 @@
+//! From questions to explorations, and from what they find to claims.
+//!
+//! Each question is asked of the cone of its nets alone: nothing else has to do with it. A hull is explored first, which
+//! holds all that can happen and perhaps more; what it does not find is proved. Where it finds something, the exact
+//! exploration decides, and a trace of it becomes a case that is run with the judges of the sweep: only what the run shows
+//! is called refuted.
+
+use std::collections::BTreeMap;
+use std::time::{Duration, Instant};
+
+use super::claim::{Call, Claim, Proof, Subject, Variation, WindowProof};
+use super::explore::{Budget, Ended, Explored, Merge, Mode, NOWHERE, explore};
+use super::key::bit;
+use super::plant::Plant;
+use super::system::{Points, System};
+use super::watch::{Nothing, Watch};
+use super::watches::{Answered, Apart, Edge, Late, Moves, Settles, Shows, ShowsLonger, Swallows, Width};
+use super::witness::{case, one_draw};
+use crate::circuit::{Circuit, NetId};
+use crate::control::Control;
+use crate::engine::{Program, Trace};
+use crate::findings::{Answers, Asked, Judge, Pattern, Question, RuleKey};
+use crate::instance::Instance;
+use crate::logic::{Bits, State};
+use crate::scenario::{Alternative, Scenario};
+use crate::time::Span;
+
+/// Gates of a cone that may begin at random, at most: every start is explored.
+const RANDOM_GATES: usize = 12;
+/// States listed of one window, at most.
+const STATES: usize = 4096;
+
+/// What a proof may spend.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Spend {
+    /// Zones of one exploration, at most.
+    pub zones: u64,
+    /// Bytes of one exploration, at most.
+    pub bytes: u64,
+    /// Time for all, at most; `None` for no bound.
+    pub time: Option<Duration>,
+}
+
+impl Default for Spend {
+    fn default() -> Spend {
+        Spend { zones: 200_000, bytes: 1 << 30, time: None }
+    }
+}
+
+/// Proves or refutes what a scenario asks.
+pub fn prove(scenario: &Scenario, program: &Program, asked: &Asked, spend: &Spend, control: &Control) -> Proof {
+    let budget = Budget {
+        zones: spend.zones,
+        bytes: spend.bytes,
+        until: spend.time.map(|time| Instant::now() + time),
+        control: control.clone(),
+    };
+    let mut prover = Prover { scenario, program, asked, budget, proof: Proof::default() };
+    prover.questions();
+    prover.windows();
+    prover.proof.claims.sort_by_key(|claim| claim.subject);
+    prover.proof
+}
+
+struct Prover<'a> {
+    scenario: &'a Scenario,
+    program: &'a Program,
+    asked: &'a Asked,
+    budget: Budget,
+    proof: Proof,
+}
+
+/// Why nothing can be said, and whether that is for want of time or by nature.
+struct Unsaid {
+    call: Call,
+    reason: String,
+}
+
+/// A cone with the states that it begins in.
+struct World {
+    plant: Plant,
+    starts: Vec<Vec<bool>>,
+}
+
+/// What looking for something in a world came to.
+enum Looked {
+    /// It cannot happen.
+    Never,
+    /// It can: hits, each with its way.
+    Hits { found: Box<Explored>, hits: BTreeMap<u32, u32>, ties: BTreeMap<u32, bool> },
+}
+
+impl<'a> Prover<'a> {
+    fn world(&self, nets: &[NetId], spans: &[Span]) -> Result<World, Unsaid> {
+        let plant = Plant::of(self.scenario, nets, spans)
+            .map_err(|what| Unsaid { call: Call::NotCovered, reason: what.to_string() })?;
+        let starts = match self.program.start() {
+            Some(start) => vec![plant.nets.iter().map(|net| start.ones.get(net.index())).collect()],
+            None if plant.gates.len() > RANDOM_GATES => {
+                let reason = format!(
+                    "it begins at random with {} gates; every start of up to {RANDOM_GATES} is explored",
+                    plant.gates.len()
+                );
+                return Err(Unsaid { call: Call::NotCovered, reason });
+            }
+            None => (0..1u64 << plant.gates.len())
+                .map(|bits| {
+                    let gates = (0..plant.gates.len()).map(|gate| bits >> gate & 1 == 1);
+                    plant.initial.iter().copied().chain(gates).collect()
+                })
+                .collect(),
+        };
+        Ok(World { plant, starts })
+    }
+
+    fn explore<W: Watch>(&mut self, world: &World, watch: &W, mode: Mode) -> Result<Explored, Unsaid> {
+        let found = explore(&world.plant, &world.starts, watch, mode, &self.budget);
+        self.proof.zones += found.zones;
+        match found.ended {
+            Ended::Complete | Ended::Hit => Ok(found),
+            ended => Err(Unsaid { call: Call::Undecided, reason: self.why(ended) }),
+        }
+    }
+
+    fn why(&self, ended: Ended) -> String {
+        match ended {
+            Ended::Complete | Ended::Hit => "nothing stopped it".to_string(),
+            Ended::Zones => format!("the budget of {} zones ran out", self.budget.zones),
+            Ended::Bytes => format!("the budget of {} MiB ran out", self.budget.bytes >> 20),
+            Ended::Seconds => "the time for the proof ran out".to_string(),
+            Ended::Together => "too many gates may fire at one instant".to_string(),
+            Ended::InFlight => "too many changes are under way on one wire".to_string(),
+            Ended::Cancelled => "interrupted".to_string(),
+        }
+    }
+
+    /// Looks for hits: a hull first, then exactly, then without what takes exactly equal times.
+    fn look<W: Watch>(&mut self, world: &World, watch: &W, wanted: &dyn Fn(u32) -> bool) -> Result<Looked, Unsaid> {
+        let hull = Mode { merge: Merge::Hull, ..Mode::default() };
+        if let Ok(found) = self.explore(world, watch, hull)
+            && !found.hits.keys().any(|hit| wanted(*hit))
+        {
+            return Ok(Looked::Never);
+        }
+        let exact = self.explore(world, watch, Mode::default())?;
+        let hits: BTreeMap<u32, u32> = exact.hits.iter().filter(|(hit, _)| wanted(**hit)).map(|(h, n)| (*h, *n)).collect();
+        if hits.is_empty() {
+            return Ok(Looked::Never);
+        }
+        let apart = self.explore(world, watch, Mode { joint: false, ..Mode::default() })?;
+        let ties: BTreeMap<u32, bool> = hits.keys().map(|hit| (*hit, !apart.hits.contains_key(hit))).collect();
+        // a way without exact ties is the better one
+        let (found, hits) = match ties.values().all(|tie| !tie) {
+            true => {
+                let hits = hits.keys().map(|hit| (*hit, apart.hits[hit])).collect();
+                (apart, hits)
+            }
+            false => (exact, hits),
+        };
+        Ok(Looked::Hits { found: Box::new(found), hits, ties })
+    }
+
+    fn claim(&mut self, question: u32, call: Call) -> &mut Claim {
+        let claim = Claim {
+            subject: Subject::Question(question),
+            call,
+            but_for_ties: false,
+            variation: None,
+            witness: None,
+            reason: None,
+        };
+        self.proof.claims.push(claim);
+        self.proof.claims.last_mut().expect("it was just added")
+    }
+
+    fn unsaid(&mut self, questions: &[u32], unsaid: &Unsaid) {
+        for question in questions {
+            self.claim(*question, unsaid.call).reason = Some(unsaid.reason.clone());
+        }
+    }
+
+    /// The questions, those of one rule and net together.
+    fn questions(&mut self) {
+        let mut groups: BTreeMap<(RuleKey, u32, Option<NetId>), Vec<u32>> = BTreeMap::new();
+        for (number, question) in self.asked.questions.iter().enumerate() {
+            groups.entry((question.rule, question.index, question.net)).or_default().push(number as u32);
+        }
+        let total = groups.len() as u64;
+        for (done, ((rule, index, net), questions)) in groups.into_iter().enumerate() {
+            self.budget.control.report(done as u64, total);
+            if let Err(unsaid) = self.group(rule, index, net, &questions) {
+                self.unsaid(&questions, &unsaid);
+            }
+        }
+    }
+
+    fn group(&mut self, rule: RuleKey, index: u32, net: Option<NetId>, questions: &[u32]) -> Result<(), Unsaid> {
+        let rules = self.scenario.rules.clone();
+        let not_covered = |reason: &str| Err(Unsaid { call: Call::NotCovered, reason: reason.to_string() });
+        match rule {
+            RuleKey::Never => {
+                let never = &rules.never[index as usize];
+                let nets: Vec<NetId> = never.state.iter().map(|(net, _)| *net).collect();
+                let world = self.world(&nets, &[never.longer_than])?;
+                let pattern = local(&world.plant, &never.state);
+                if never.longer_than == Span::ZERO {
+                    self.whole_run(&world, &Shows { pattern }, questions[0])
+                } else {
+                    let longer = world.plant.ticks(never.longer_than);
+                    self.whole_run(&world, &ShowsLonger { pattern, longer }, questions[0])
+                }
+            }
+            RuleKey::Timing => {
+                let timing = &rules.timing[index as usize];
+                let spans: Vec<Span> = timing.min.into_iter().chain(timing.max).collect();
+                let world = self.world(&[timing.from.net, timing.to.net], &spans)?;
+                let edge = |spec: &crate::scenario::EdgeSpec| Edge {
+                    net: world.plant.local(spec.net).expect("the cone holds its nets"),
+                    kind: spec.edge,
+                };
+                let (from, to) = (edge(&timing.from), edge(&timing.to));
+                let min = timing.min.filter(|min| *min > Span::ZERO).map(|min| Apart { from, to, min: world.plant.ticks(min) });
+                let must = !self.scenario.circuit.is_input(timing.to.net);
+                let max = timing.max.map(|max| Answered { from, to, max: world.plant.ticks(max), must });
+                match (min, max) {
+                    (Some(min), None) => self.whole_run(&world, &min, questions[0]),
+                    (None, Some(max)) => self.whole_run(&world, &max, questions[0]),
+                    (Some(min), Some(max)) => {
+                        self.whole_run(&world, &min, questions[0])?;
+                        let first = self.proof.claims.pop();
+                        self.whole_run(&world, &max, questions[0])?;
+                        // the worse of both answers for the rule
+                        if let Some(first) = first
+                            && self.proof.claims.last().is_some_and(|second| severity(first.call) > severity(second.call))
+                        {
+                            *self.proof.claims.last_mut().expect("there is one") = first;
+                        }
+                        Ok(())
+                    }
+                    (None, None) => {
+                        self.claim(questions[0], Call::Proved);
+                        Ok(())
+                    }
+                }
+            }
+            RuleKey::MinPulse => {
+                let rule = &rules.min_pulse[index as usize];
+                let spans: Vec<Span> = rule.high.into_iter().chain(rule.low).collect();
+                let world = self.world(&[rule.net], &spans)?;
+                let ticks = |span: Option<Span>| span.map_or(0, |span| world.plant.ticks(span));
+                let net = world.plant.local(rule.net).expect("the cone holds its nets");
+                let watch = Width { net, least: [ticks(rule.low), ticks(rule.high)] };
+                self.whole_run(&world, &watch, questions[0])
+            }
+            RuleKey::Swallowed => {
+                let nets: Vec<NetId> = match net {
+                    Some(net) => vec![net],
+                    None => self.scenario.circuit.gates().map(|gate| self.scenario.circuit.net_of(gate)).collect(),
+                };
+                for net in nets {
+                    let world = self.world(&[net], &[])?;
+                    let net = world.plant.local(net).expect("the cone holds its nets");
+                    let Some(gate) = (net as usize).checked_sub(world.plant.inputs) else { continue };
+                    self.whole_run(&world, &Swallows { gate: gate as u32 }, questions[0])?;
+                    if self.proof.claims.last().is_some_and(|claim| claim.call != Call::Proved) {
+                        return Ok(());
+                    }
+                    self.proof.claims.pop();
+                }
+                self.claim(questions[0], Call::Proved);
+                Ok(())
+            }
+            RuleKey::GlitchFree => self.glitches(index, questions),
+            RuleKey::Edges => self.edges(questions),
+            RuleKey::SettleWithin => self.settle_within(net.expect("it is asked of a net"), questions),
+            RuleKey::NeverAtRest => {
+                let state = rules.never_at_rest[index as usize].state.clone();
+                let nets: Vec<NetId> = state.iter().map(|(net, _)| *net).collect();
+                self.rests(&nets, questions, &|plant, values, _| !local(plant, &state).iter().all(|(n, v)| bit(values, *n as usize) == *v))
+            }
+            RuleKey::Expect => {
+                // each step expects something of its own
+                for question in questions {
+                    let Some(Pattern::OneOf(expect)) = &self.asked.questions[*question as usize].pattern else { continue };
+                    let mut nets: Vec<NetId> = expect.alternatives.iter().flatten().map(|(net, _)| *net).collect();
+                    nets.sort_unstable();
+                    nets.dedup();
+                    let alternatives = expect.alternatives.clone();
+                    let fits = |plant: &Plant, values: &[u64], _: u32| {
+                        let fit = |it: &Alternative| local(plant, it).iter().all(|(n, v)| bit(values, *n as usize) == *v);
+                        alternatives.iter().any(fit)
+                    };
+                    if let Err(unsaid) = self.rests(&nets, &[*question], &fits) {
+                        self.unsaid(&[*question], &unsaid);
+                    }
+                }
+                Ok(())
+            }
+            RuleKey::Reference => not_covered("the comparison with the reference is not part of the proof yet"),
+            RuleKey::CriticalRace => not_covered("races of whole states are not part of the proof yet"),
+            RuleKey::Oscillation => not_covered("oscillation is not part of the proof yet"),
+            RuleKey::When => not_covered("steps that wait for a pattern are not part of the proof yet"),
+            RuleKey::BeforeRest => not_covered("steps before rest are not part of the proof yet"),
+        }
+    }
+
+    /// A question about whole runs: any hit breaks it.
+    fn whole_run<W: Watch>(&mut self, world: &World, watch: &W, question: u32) -> Result<(), Unsaid> {
+        match self.look(world, watch, &|_| true)? {
+            Looked::Never => {
+                self.claim(question, Call::Proved);
+            }
+            Looked::Hits { found, hits, ties } => {
+                let ways: Vec<(u32, bool)> = hits.iter().map(|(hit, node)| (*node, ties[hit])).collect();
+                self.refute(world, &found, &ways, question);
+            }
+        }
+        Ok(())
+    }
+
+    /// Questions about windows: hits of each say whether they break it.
+    fn by_window<W: Watch>(
+        &mut self,
+        world: &World,
+        watch: &W,
+        questions: &[u32],
+        breaks: &dyn Fn(&Question, std::ops::Range<u32>, u32) -> bool,
+    ) -> Result<(), Unsaid> {
+        let ranges: Vec<(u32, std::ops::Range<u32>)> =
+            questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
+        let asked = self.asked;
+        let wanted = |hit: u32| ranges.iter().any(|(q, steps)| breaks(&asked.questions[*q as usize], steps.clone(), hit));
+        match self.look(world, watch, &wanted)? {
+            Looked::Never => {
+                for question in questions {
+                    self.claim(*question, Call::Proved);
+                }
+            }
+            Looked::Hits { found, hits, ties } => {
+                for (question, steps) in &ranges {
+                    let ask = &asked.questions[*question as usize];
+                    let of: Vec<(u32, bool)> =
+                        hits.iter().filter(|(hit, _)| breaks(ask, steps.clone(), **hit)).map(|(hit, node)| (*node, ties[hit])).collect();
+                    match of.is_empty() {
+                        true => {
+                            self.claim(*question, Call::Proved);
+                        }
+                        false => self.refute(world, &found, &of, *question),
+                    }
+                }
+            }
+        }
+        Ok(())
+    }
+
+    /// The numbers of steps taken in the window of a question: from its step to the next that sets an input of the plant.
+    fn steps_of(&self, plant: &Plant, question: u32) -> std::ops::Range<u32> {
+        let moment = self.asked.questions[question as usize].moment;
+        let stimulus = &self.scenario.stimulus;
+        let first = match moment.map(|moment| &stimulus.moments[moment as usize].kind) {
+            Some(crate::scenario::MomentKind::Step(step)) => step + 1,
+            _ => 0,
+        };
+        let next = plant.steps.iter().enumerate().skip(first as usize).find(|(_, step)| !step.set.is_empty());
+        first..next.map_or(plant.steps.len() as u32 + 1, |(step, _)| step as u32 + 1)
+    }
+
+    fn glitches(&mut self, index: u32, questions: &[u32]) -> Result<(), Unsaid> {
+        let rule = self.scenario.rules.glitch_free[index as usize].clone();
+        let world = self.world(&[rule.net], &[])?;
+        let watch = Moves { net: world.plant.local(rule.net).expect("the cone holds its nets"), most: 2 };
+        let from = self.proof.claims.len();
+        let glitch = |_: &Question, steps: std::ops::Range<u32>, hit: u32| {
+            let moved = Moves::moved(hit);
+            steps.contains(&moved.steps) && moved.count >= 2
+        };
+        self.by_window(&world, &watch, questions, &glitch)?;
+        if rule.shorter_than > Span::ZERO {
+            for claim in &mut self.proof.claims[from..] {
+                if claim.call == Call::Undecided {
+                    claim.call = Call::NotCovered;
+                    claim.reason = Some("that glitches shorter than a bound are tolerated is not part of the proof; it can glitch".into());
+                }
+            }
+        }
+        Ok(())
+    }
+
+    fn edges(&mut self, questions: &[u32]) -> Result<(), Unsaid> {
+        for question in questions {
+            let Some(Pattern::Count(count)) = self.asked.questions[*question as usize].pattern.clone() else { continue };
+            let world = self.world(&[count.net], &[])?;
+            let most = count.most.max(count.least);
+            if most > 100 {
+                let reason = "more than 100 edges are not counted by the proof".to_string();
+                self.unsaid(&[*question], &Unsaid { call: Call::NotCovered, reason });
+                continue;
+            }
+            let watch = Moves { net: world.plant.local(count.net).expect("the cone holds its nets"), most };
+            let wrong = |_: &Question, steps: std::ops::Range<u32>, hit: u32| {
+                let moved = Moves::moved(hit);
+                steps.contains(&moved.steps) && !(count.least..=count.most).contains(&moved.count)
+            };
+            if let Err(unsaid) = self.by_window(&world, &watch, &[*question], &wrong) {
+                self.unsaid(&[*question], &unsaid);
+            }
+        }
+        Ok(())
+    }
+
+    fn settle_within(&mut self, net: NetId, questions: &[u32]) -> Result<(), Unsaid> {
+        let spans: Vec<Span> = questions.iter().filter_map(|q| self.asked.questions[*q as usize].bound).collect();
+        let world = self.world(&[net], &spans)?;
+        let mut bounds = vec![None; world.plant.steps.len() + 1];
+        for question in questions {
+            let first = self.steps_of(&world.plant, *question).start;
+            bounds[first as usize] = self.asked.questions[*question as usize].bound.map(|bound| world.plant.ticks(bound));
+        }
+        let watch = Late { net: world.plant.local(net).expect("the cone holds its nets"), bounds };
+        self.by_window(&world, &watch, questions, &|_, steps, hit| steps.start == hit)
+    }
+
+    /// Questions about where nets rest. `good` says whether values (with the origin of the window) are allowed.
+    fn rests(&mut self, nets: &[NetId], questions: &[u32], good: &dyn Fn(&Plant, &[u64], u32) -> bool) -> Result<(), Unsaid> {
+        let world = self.world(nets, &[])?;
+        let ranges: Vec<(u32, std::ops::Range<u32>)> =
+            questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
+        let bad = |found: &Explored, steps: &std::ops::Range<u32>| -> Vec<(u32, super::explore::Rest)> {
+            let all = found.rests.iter().filter(|(rest, _)| {
+                let begins = rest.steps == 0 && steps.start == 0;
+                steps.contains(&rest.steps)
+                    && (rest.origin != NOWHERE || begins)
+                    && !good(&world.plant, &found.states[rest.state as usize], rest.origin)
+            });
+            all.map(|(rest, node)| (*node, *rest)).collect()
+        };
+        let hull = Mode { merge: Merge::Hull, ..Mode::default() };
+        if let Ok(found) = self.explore(&world, &Nothing, hull)
+            && ranges.iter().all(|(_, steps)| bad(&found, steps).is_empty())
+        {
+            for question in questions {
+                self.claim(*question, Call::Proved);
+            }
+            return Ok(());
+        }
+        let exact = self.explore(&world, &Nothing, Mode::default())?;
+        let apart = self.explore(&world, &Nothing, Mode { joint: false, ..Mode::default() })?;
+        let values = |found: &Explored, rest: super::explore::Rest| (rest.steps, found.states[rest.state as usize].clone());
+        for (question, steps) in &ranges {
+            let all = bad(&exact, steps);
+            if all.is_empty() {
+                self.claim(*question, Call::Proved);
+                continue;
+            }
+            let without = bad(&apart, steps);
+            if without.is_empty() {
+                let ways: Vec<(u32, bool)> = all.iter().map(|(node, _)| (*node, true)).collect();
+                self.refute(&world, &exact, &ways, *question);
+            } else {
+                let mut seen = Vec::new();
+                let ways = without.iter().filter(|(_, rest)| {
+                    let new = !seen.contains(&values(&apart, *rest));
+                    seen.push(values(&apart, *rest));
+                    new
+                });
+                let ways: Vec<(u32, bool)> = ways.map(|(node, _)| (*node, false)).collect();
+                self.refute(&world, &apart, &ways, *question);
+            }
+        }
+        Ok(())
+    }
+
+    /// Traces break a question: makes one of them a case, runs it, and says what came of it.
+    fn refute(&mut self, world: &World, found: &Explored, ways: &[(u32, bool)], question: u32) {
+        let but_for_ties = ways.iter().all(|(_, tie)| *tie);
+        let mut witness = None;
+        let mut reason = None;
+        let mut only_cycles = true;
+        for (node, _) in ways.iter().take(16) {
+            let (trace, start) = (found.trace(*node), found.start(*node));
+            let shared = one_draw(self.scenario, &world.plant);
+            let system = System::of(&world.plant, &start, &trace, &shared);
+            match system.solve() {
+                Points::Some(point) => {
+                    only_cycles = false;
+                    let case = case(self.scenario, &world.plant, &system, &point, &trace, &start);
+                    if self.shows(&case.instance, question) {
+                        witness = Some(Box::new(case.instance));
+                        break;
+                    }
+                    reason = Some("delays were found, but their run does not show it".to_string());
+                }
+                Points::None => {
+                    reason.get_or_insert("no constant delays were found that show it".to_string());
+                }
+                Points::GaveUp => {
+                    only_cycles = false;
+                    reason = Some("the numbers of the linear program grew too large".to_string());
+                }
+            }
+        }
+        let refuted = witness.is_some();
+        let claim = self.claim(question, if refuted { Call::Refuted } else { Call::Undecided });
+        claim.but_for_ties = but_for_ties;
+        claim.variation = Some(if refuted { Variation::Constant } else { Variation::Unknown });
+        claim.witness = witness;
+        let _ = only_cycles;
+        claim.reason = if refuted { None } else { reason };
+    }
+
+    /// Does a run of this case break the question?
+    fn shows(&self, instance: &Instance, question: u32) -> bool {
+        let mut observers = (Trace::default(), Judge::new(self.scenario, self.asked, Answers::default()));
+        if !self.program.machine().run(instance, &self.budget.control, &mut observers) {
+            return false;
+        }
+        let facts = &observers.1.sink.facts;
+        facts.iter().any(|fact| fact.breaks_rule && fact.subject.question == Some(question))
+    }
+
+    /// What is known of whole windows.
+    fn windows(&mut self) {
+        let circuit = self.scenario.circuit.clone();
+        let mut parts: Vec<Vec<NetId>> = vec![Vec::new(); circuit.block_count()];
+        for gate in circuit.gates() {
+            parts[circuit.block(gate) as usize].push(circuit.net_of(gate));
+        }
+        let steps = self.scenario.stimulus.steps.len();
+        let mut windows: Vec<Window> = vec![Window::default(); steps + 1];
+        for nets in &parts {
+            if self.part(&circuit, nets, &mut windows).is_err() {
+                return;
+            }
+        }
+        let power_up = self.scenario.begin_window().is_some();
+        let first = usize::from(!power_up);
+        for (taken, window) in windows.into_iter().enumerate().skip(first) {
+            let moment = if power_up { taken } else { taken - 1 } as u32;
+            self.proof.windows.push(window.done(self.scenario, taken, moment));
+        }
+    }
+
+    fn part(&mut self, circuit: &Circuit, nets: &[NetId], windows: &mut [Window]) -> Result<(), Unsaid> {
+        let world = self.world(nets, &[])?;
+        let found = self.explore(&world, &Nothing, Mode::default())?;
+        for (taken, window) in windows.iter_mut().enumerate() {
+            let mut states: Vec<State> = Vec::new();
+            for rest in found.rests.keys().filter(|rest| rest.steps as usize == taken) {
+                let mut state = State::known(Bits::zeros(circuit.net_count()));
+                for (local, net) in world.plant.nets.iter().enumerate() {
+                    state.set(net.index(), bit(&found.states[rest.state as usize], local).into());
+                }
+                if !states.contains(&state) {
+                    states.push(state);
+                }
+            }
+            window.join(states);
+        }
+        let edges = self.explore(&world, &Nothing, Mode { edges: true, ..Mode::default() })?;
+        let (joint, ties) = match is_acyclic(&edges) {
+            true => (true, false),
+            false => {
+                let apart = self.explore(&world, &Nothing, Mode { edges: true, joint: false, ..Mode::default() })?;
+                if !is_acyclic(&apart) {
+                    windows.iter_mut().for_each(|window| window.settling = Some(None));
+                    return Ok(());
+                }
+                (false, true)
+            }
+        };
+        let watch = Settles::default();
+        self.explore(&world, &watch, Mode { joint, ..Mode::default() })?;
+        for (taken, window) in windows.iter_mut().enumerate() {
+            let figures = watch.figures.borrow();
+            let these = figures.get(&(taken as u32)).map(|[least, most]| {
+                (world.plant.span(least.0), world.plant.span(most.0), !most.1)
+            });
+            window.settle(these, ties);
+        }
+        Ok(())
+    }
+}
+
+/// What the parts of a circuit say of one window, joined.
+#[derive(Clone, Debug, Default)]
+struct Window {
+    /// States, all nets; `None` before the first part, `Some(None)` where there are too many.
+    states: Option<Option<Vec<State>>>,
+    /// Least and greatest settling time, and whether the greatest is only come near to.
+    settling: Option<Option<(Span, Span, bool)>>,
+    ties: bool,
+}
+
+impl Window {
+    fn join(&mut self, states: Vec<State>) {
+        self.states = Some(match self.states.take() {
+            None => Some(states),
+            Some(None) => None,
+            Some(Some(all)) if all.len().saturating_mul(states.len()) > STATES => {
+                let _ = all;
+                None
+            }
+            Some(Some(all)) => {
+                let both = |(a, b): (&State, &State)| {
+                    let mut state = a.clone();
+                    for net in b.ones.ones() {
+                        state.set(net, true.into());
+                    }
+                    state
+                };
+                Some(all.iter().flat_map(|a| states.iter().map(move |b| (a, b))).map(both).collect())
+            }
+        });
+    }
+
+    fn settle(&mut self, figures: Option<(Span, Span, bool)>, ties: bool) {
+        self.ties |= ties;
+        self.settling = Some(match (self.settling.take(), figures) {
+            (None, figures) => figures,
+            (Some(None), _) | (_, None) => None,
+            (Some(Some(ours)), Some(theirs)) => {
+                let most = (ours.1, !ours.2).max((theirs.1, !theirs.2));
+                Some((ours.0.max(theirs.0), most.0, !most.1))
+            }
+        });
+    }
+
+    fn done(self, scenario: &Scenario, taken: usize, moment: u32) -> WindowProof {
+        // inputs that no gate reads belong to no part
+        let mut inputs = scenario.stimulus.initial.clone();
+        for step in &scenario.stimulus.steps[..taken] {
+            step.set.iter().for_each(|(net, value)| inputs[net.index()] = *value);
+        }
+        let mut states = self.states.flatten();
+        for state in states.iter_mut().flatten() {
+            inputs.iter().enumerate().for_each(|(net, value)| state.set(net, (*value).into()));
+        }
+        if let Some(states) = &mut states {
+            states.sort();
+            states.dedup();
+        }
+        let settling = self.settling.flatten();
+        WindowProof {
+            moment,
+            states,
+            settling: settling.map(|(least, most, _)| (least, most)),
+            settling_below: settling.is_some_and(|it| it.2),
+            settling_but_for_ties: self.ties,
+        }
+    }
+}
+
+/// A partial state by the numbers of the plant.
+fn local(plant: &Plant, state: &Alternative) -> Vec<(u32, bool)> {
+    state.iter().filter_map(|(net, value)| plant.local(*net).map(|net| (net, *value))).collect()
+}
+
+fn severity(call: Call) -> u8 {
+    match call {
+        Call::Proved => 0,
+        Call::NotCovered => 1,
+        Call::Undecided => 2,
+        Call::Refuted => 3,
+    }
+}
+
+/// Does no way lead back to where it came from?
+fn is_acyclic(found: &Explored) -> bool {
+    let nodes = found.edges.iter().map(|(a, b)| a.max(b) + 1).max().unwrap_or(0) as usize;
+    let mut next: Vec<Vec<u32>> = vec![Vec::new(); nodes];
+    let mut into = vec![0u32; nodes];
+    for (from, to) in &found.edges {
+        next[*from as usize].push(*to);
+        into[*to as usize] += 1;
+    }
+    let mut open: Vec<u32> = (0..nodes as u32).filter(|node| into[*node as usize] == 0).collect();
+    let mut done = 0;
+    while let Some(node) = open.pop() {
+        done += 1;
+        for other in &next[node as usize] {
+            into[*other as usize] -= 1;
+            if into[*other as usize] == 0 {
+                open.push(*other);
+            }
+        }
+    }
+    done == nodes
+}

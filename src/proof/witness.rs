@@ -1,0 +1,102 @@
+//! From a point of a system to a case that can be run.
+
+use super::key::Mover;
+use super::plant::Plant;
+use super::system::{Point, System, Unknown};
+use super::Fired;
+use crate::instance::{Instance, Which};
+use crate::scenario::{Place, Scenario};
+use crate::time::Span;
+
+/// A case made of a point. What the plant does not hold is typical.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Case {
+    /// The case.
+    pub instance: Instance,
+    /// Is every value a whole number of femtoseconds? If not they were rounded down, and what needs exact equality may be lost.
+    pub exact: bool,
+}
+
+/// Which unknowns are always equal in a scenario: both edges of a gate or wire whose delays come from one draw.
+pub fn one_draw<'a>(scenario: &'a Scenario, plant: &'a Plant) -> impl Fn(Unknown) -> Unknown + 'a {
+    move |unknown| match unknown {
+        Unknown::Gate(gate, _) if scenario.delays.gate_one_draw[plant.gates[gate as usize].gate.index()] => {
+            Unknown::Gate(gate, false)
+        }
+        Unknown::Wire(wire, _) if scenario.delays.wire_one_draw[plant.wires[wire as usize].wire.index()] => {
+            Unknown::Wire(wire, false)
+        }
+        other => other,
+    }
+}
+
+/// The case of a point of the system of a trace. `start` are the values of all signals where the trace begins.
+pub fn case(scenario: &Scenario, plant: &Plant, system: &System, point: &Point, trace: &[Fired], start: &[u64]) -> Case {
+    let mut instance = Instance::of(scenario, &Which::Typ);
+    let mut exact = true;
+    let mut span = |value: i128| {
+        let fs = value * i128::from(plant.tick);
+        exact &= fs % point.denominator == 0;
+        Span::from_fs((fs / point.denominator) as u64)
+    };
+    // inputs with skew change with their step unless the trace says otherwise
+    for (step, skews) in scenario.stimulus.steps.iter().zip(&mut instance.skews) {
+        let least = step.skew.map_or(Span::ZERO, |range| range.min);
+        skews.iter_mut().for_each(|skew| *skew = least);
+    }
+    for (unknown, value) in system.unknowns.iter().zip(&point.values) {
+        let value = span(*value);
+        match *unknown {
+            Unknown::Gate(gate, rises) => {
+                let gate = plant.gates[gate as usize].gate.index();
+                let edges = &mut instance.delays.gate[gate];
+                match scenario.delays.gate_one_draw[gate] && !system.unknowns.contains(&unknown.other_edge()) {
+                    true => *edges = [value; 2],
+                    false => edges[usize::from(rises)] = value,
+                }
+            }
+            Unknown::Wire(wire, rises) => {
+                let wire = plant.wires[wire as usize].wire.index();
+                let edges = &mut instance.delays.wire[wire];
+                match scenario.delays.wire_one_draw[wire] && !system.unknowns.contains(&unknown.other_edge()) {
+                    true => *edges = [value; 2],
+                    false => edges[usize::from(rises)] = value,
+                }
+            }
+            Unknown::Place(step) => instance.places[step as usize] = value,
+            Unknown::Late(step, entry) => {
+                let of = &scenario.stimulus.steps[step as usize];
+                let (net, _) = plant.steps[step as usize].set[entry as usize];
+                let net = plant.nets[net as usize];
+                if let (Some(at), Some(range)) = (of.set.iter().position(|it| it.0 == net), of.skew) {
+                    instance.skews[step as usize][at] = range.min + value;
+                }
+            }
+        }
+    }
+    // steps that the trace does not reach stay in order behind it
+    let movers = trace.iter().flat_map(|block| &block.movers);
+    let reached = movers.filter(|mover| matches!(mover, Mover::Step(_))).count();
+    for (step, place) in scenario.stimulus.steps.iter().zip(&mut instance.places).skip(reached) {
+        if let Place::At(range) | Place::After(range) = &step.place {
+            *place = range.max;
+        }
+    }
+    if scenario.begin == crate::scenario::Begin::Random {
+        for (gate, it) in plant.gates.iter().enumerate() {
+            instance.start.set(it.gate.index(), super::key::bit(start, plant.inputs + gate));
+        }
+    }
+    Case { instance, exact }
+}
+
+impl Unknown {
+    /// The other edge of the same gate or wire.
+    pub fn other_edge(self) -> Unknown {
+        match self {
+            Unknown::Gate(gate, rises) => Unknown::Gate(gate, !rises),
+            Unknown::Wire(wire, rises) => Unknown::Wire(wire, !rises),
+            other => other,
+        }
+    }
+}
