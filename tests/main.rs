@@ -4,6 +4,9 @@
 
 mod boards;
 mod bounded;
+mod bounded_agrees;
+mod bounded_cycles;
+mod bounded_simulated;
 mod commands;
 mod conditions;
 mod coverage;

@@ -132,7 +132,7 @@ pub struct Explored {
     pub states: Vec<Box<[u64]>>,
     /// Hits of the watch, each with the node that led to it first.
     pub hits: BTreeMap<u32, u32>,
-    /// Which node leads to which, where that was asked for.
+    /// Which node leads to which, where that was asked for; one that lies in a later one leads to that.
     pub edges: Vec<(u32, u32)>,
     /// Did a step that changes an input here come before rest, by number of the step?
     pub cut: Vec<bool>,
@@ -163,6 +163,21 @@ impl Explored {
         blocks
     }
 
+    /// How many nodes there are.
+    pub(super) fn nodes(&self) -> usize {
+        self.nodes.len()
+    }
+
+    /// The values of all signals at a node.
+    pub(super) fn values(&self, node: u32) -> Vec<u64> {
+        self.key(self.nodes[node as usize].key).values().to_vec()
+    }
+
+    /// Steps taken at a node.
+    pub(super) fn steps(&self, node: u32) -> usize {
+        self.key(self.nodes[node as usize].key).steps()
+    }
+
     /// The values of the signals where a trace begins.
     pub fn start(&self, node: u32) -> Vec<u64> {
         let mut at = node;
@@ -173,9 +188,55 @@ impl Explored {
     }
 }
 
+/// The rules on which an exploration rests. [`Exact`] has them as they must be; others are of use to show that tests would
+/// notice if one of them were wrong.
+pub trait Semantics {
+    /// From when on something with this least delay may fire.
+    fn due(&self, min: i64) -> i64 {
+        min
+    }
+    /// How old the event of a gate with this greatest delay may be when it is cancelled: at its deadline it would have
+    /// fired in this very batch.
+    fn cancelled(&self, max: i64) -> zone::Code {
+        zone::below(max)
+    }
+    /// The bound under which a state lasts whose clock may run up to this one.
+    fn lasts(&self, limit: zone::Code) -> zone::Code {
+        zone::strictly(limit)
+    }
+    /// The bound on the constant less a clock that must have run for a while: a step after what fired before it, an
+    /// arrival after the one before it, a late input after its step.
+    fn later(&self) -> zone::Code {
+        zone::BELOW_ZERO
+    }
+    /// Must a gate that was disabled stay so for a while, if what could excite it again could have come together with
+    /// what disabled it?
+    fn cools(&self) -> bool {
+        true
+    }
+}
+
+/// The semantics of the engine.
+#[derive(Clone, Copy, Debug, Default)]
+pub struct Exact;
+
+impl Semantics for Exact {}
+
 /// Explores a plant from start states (values of inputs and gates; wires have those of their nets).
 pub fn explore<W: Watch>(plant: &Plant, starts: &[Vec<bool>], watch: &W, mode: Mode, budget: &Budget) -> Explored {
-    let mut explorer = Explorer::new(plant, watch, mode, budget);
+    explore_under(&Exact, plant, starts, watch, mode, budget)
+}
+
+/// Explores a plant under given rules.
+pub fn explore_under<W: Watch, S: Semantics>(
+    semantics: &S,
+    plant: &Plant,
+    starts: &[Vec<bool>],
+    watch: &W,
+    mode: Mode,
+    budget: &Budget,
+) -> Explored {
+    let mut explorer = Explorer::new(semantics, plant, watch, mode, budget);
     for start in starts {
         explorer.begin(start);
     }
@@ -185,6 +246,11 @@ pub fn explore<W: Watch>(plant: &Plant, starts: &[Vec<bool>], watch: &W, mode: M
         explorer.expand(node);
     }
     explorer.found
+}
+
+/// The greatest delay of an excited gate.
+fn gate_max(plant: &Plant, values: &[u64], gate: usize) -> i64 {
+    plant.gates[gate].delay[usize::from(!bit(values, plant.inputs + gate))].max
 }
 
 /// What follows from each known key, by its number.
@@ -200,7 +266,8 @@ struct Known {
     joint: Vec<Joint>,
 }
 
-struct Explorer<'a, W> {
+struct Explorer<'a, W, S> {
+    semantics: &'a S,
     plant: &'a Plant,
     watch: &'a W,
     mode: Mode,
@@ -222,19 +289,8 @@ struct Explorer<'a, W> {
     hits: Vec<u32>,
 }
 
-/// How a step comes that could come at the instant of the one before it.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-enum Tie {
-    /// It could not.
-    None,
-    /// It does.
-    Same,
-    /// It comes later.
-    Later,
-}
-
-impl<'a, W: Watch> Explorer<'a, W> {
-    fn new(plant: &'a Plant, watch: &'a W, mode: Mode, budget: &'a Budget) -> Self {
+impl<'a, W: Watch, S: Semantics> Explorer<'a, W, S> {
+    fn new(semantics: &'a S, plant: &'a Plant, watch: &'a W, mode: Mode, budget: &'a Budget) -> Self {
         let layout = Layout::of(plant);
         let found = Explored {
             ended: Ended::Complete,
@@ -251,6 +307,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
             layout,
         };
         Explorer {
+            semantics,
             plant,
             watch,
             mode,
@@ -362,7 +419,8 @@ impl<'a, W: Watch> Explorer<'a, W> {
             self.try_fire(node, &[]);
             return;
         }
-        let reach = |agent: &Agent| self.matrices[at + agent.row * size] >= zone::at_most(agent.min);
+        let reach =
+            |agent: &Agent| self.matrices[at + agent.row * size] >= zone::at_most(self.semantics.due(agent.min));
         let able: Vec<usize> = (0..info.agents.len()).filter(|i| reach(&info.agents[*i])).collect();
         let agents: Vec<Agent> = able.iter().map(|i| info.agents[*i]).collect();
         for agent in &agents {
@@ -390,44 +448,59 @@ impl<'a, W: Watch> Explorer<'a, W> {
         self.plant.steps.get(self.found.key(key).steps()).map(|step| step.place)
     }
 
-    /// Fires agents of a node together, in every way in which a step among them can come. No agents: the step that waited
+    /// Fires agents of a node together, in every way in which steps among them can come. No agents: the step that waited
     /// for rest.
     fn try_fire(&mut self, node: u32, agents: &[Agent]) {
         let key = self.found.nodes[node as usize].key;
-        let steps = self.found.key(key).steps();
-        let step = agents.is_empty() || agents.iter().any(|agent| matches!(agent.mover, Mover::Step(_)));
-        let mut movers: Vec<Mover> = agents.iter().map(|agent| agent.mover).collect();
-        if !step {
-            self.fire(node, agents, &movers, Tie::None);
-            return;
+        let taken = self.found.key(key).steps();
+        let mut movers: Vec<Mover> = Vec::with_capacity(agents.len() + 1);
+        let of_step = agents.iter().find(|agent| matches!(agent.mover, Mover::Step(_)));
+        if of_step.is_some() {
+            // inputs that are late come first
+            let late = self.found.key(key).skew();
+            movers.extend((0..64).filter(|entry| late >> entry & 1 == 1).map(Mover::Late));
         }
-        if agents.is_empty() {
-            movers.push(Mover::Step(self.plant.steps[steps].whole()));
-        }
-        let at = movers.iter().position(|mover| matches!(mover, Mover::Step(_))).expect("a step is among them");
-        let info = &self.known.infos[key as usize];
-        let since = info.row(Slot::Since);
-        let size = info.slots.len() + 1;
-        let start = self.found.nodes[node as usize].at;
-        let could = steps > 0 && since > 0 && self.matrices[start + since] == zone::AT_MOST_ZERO;
-        let ties: &[Tie] = if could { &[Tie::Same, Tie::Later] } else { &[Tie::None] };
-        debug_assert!(since < size);
-        for tie in ties {
-            for mask in self.first_changes(key, steps) {
-                movers[at] = Mover::Step(mask);
-                self.fire(node, agents, &movers, *tie);
+        movers.extend(agents.iter().map(|agent| agent.mover).filter(|mover| !matches!(mover, Mover::Step(_))));
+        let numbers = match of_step {
+            Some(agent) => vec![agent.steps],
+            None if agents.is_empty() => self.plant.at_once(taken),
+            None => {
+                self.fire(node, agents, &movers, 0);
+                return;
             }
+        };
+        for steps in numbers {
+            let steps = steps as usize;
+            let before = movers.len();
+            movers.extend((1..steps).map(|_| Mover::Step(u64::MAX)));
+            for mask in self.first_changes(key, taken, steps) {
+                movers.push(Mover::Step(mask));
+                self.fire(node, agents, &movers, steps);
+                movers.pop();
+            }
+            movers.truncate(before);
         }
     }
 
-    /// The sets of inputs (a bit an entry) that a step can change at its very instant.
-    fn first_changes(&self, key: u32, steps: usize) -> Vec<u64> {
-        let step = &self.plant.steps[steps];
+    /// The sets of inputs (a bit an entry) that the last of these steps can change at its very instant.
+    fn first_changes(&self, key: u32, taken: usize, steps: usize) -> Vec<u64> {
+        let step = &self.plant.steps[taken + steps - 1];
         if step.skew == 0 {
             return vec![u64::MAX];
         }
-        let values = self.found.key(key).values();
-        let differs = |(net, value): &(u32, bool)| bit(values, *net as usize) != *value;
+        let key = self.found.key(key);
+        let mut values = key.values().to_vec();
+        if let Some(last) = taken.checked_sub(1) {
+            for (entry, (net, value)) in self.plant.steps[last].set.iter().enumerate() {
+                if entry < 64 && key.skew() >> entry & 1 == 1 {
+                    put(&mut values, *net as usize, *value);
+                }
+            }
+        }
+        for step in &self.plant.steps[taken..taken + steps - 1] {
+            step.set.iter().for_each(|(net, value)| put(&mut values, *net as usize, *value));
+        }
+        let differs = |(net, value): &(u32, bool)| bit(&values, *net as usize) != *value;
         let changing =
             step.set.iter().enumerate().filter(|(_, entry)| differs(entry)).fold(0u64, |all, (i, _)| all | 1 << i);
         // one that stays as it is may be the first as well
@@ -444,8 +517,78 @@ impl<'a, W: Watch> Explorer<'a, W> {
         parts
     }
 
-    /// Fires movers together out of a node.
-    fn fire(&mut self, node: u32, agents: &[Agent], movers: &[Mover], tie: Tie) {
+    /// Fires movers together out of a node, in every way in which the changes that set out on wires can overtake others.
+    fn fire(&mut self, node: u32, agents: &[Agent], movers: &[Mover], steps: usize) {
+        let plant = self.plant;
+        let key = self.found.nodes[node as usize].key;
+        self.next_values(key, movers);
+        let key = self.found.key(key);
+        let mut free: Vec<(u32, u8)> = Vec::new();
+        if !plant.wires.is_empty() {
+            for (w, wire) in plant.wires.iter().enumerate() {
+                let flights = key.flights(w) - u8::from(movers.contains(&Mover::Arrival(w as u32)));
+                let changes = bit(key.values(), wire.net as usize) != bit(&self.words, wire.net as usize);
+                if changes && flights > 0 && !wire.in_order {
+                    free.push((w as u32, flights));
+                }
+            }
+        }
+        if free.is_empty() {
+            self.fire_so(node, agents, movers, steps);
+            return;
+        }
+        let mut taken = vec![0u8; free.len()];
+        loop {
+            let mut all = movers.to_vec();
+            let overtaken = free.iter().zip(&taken).filter(|(_, number)| **number > 0);
+            all.extend(overtaken.map(|((wire, _), number)| Mover::Overtaking(*wire, *number)));
+            self.next_values(self.found.nodes[node as usize].key, movers);
+            self.fire_so(node, agents, &all, steps);
+            let Some(next) = (0..free.len()).find(|at| taken[*at] < free[*at].1) else { return };
+            taken[next] += 1;
+            taken[..next].fill(0);
+        }
+    }
+
+    /// The words of a key after some movers, but for what pends, into `words`.
+    fn next_values(&mut self, key: u32, movers: &[Mover]) {
+        let (plant, layout) = (self.plant, self.layout);
+        let key = self.found.key(key);
+        let mut taken = key.steps();
+        self.words.copy_from_slice(key.words);
+        let flip = |words: &mut [u64], signal: usize| {
+            let value = !bit(words, signal);
+            put(words, signal, value);
+        };
+        for mover in movers {
+            match *mover {
+                Mover::Gate(gate) => flip(&mut self.words, plant.inputs + gate as usize),
+                Mover::Arrival(wire) => flip(&mut self.words, plant.nets.len() + wire as usize),
+                Mover::Overtaking(..) => {}
+                Mover::Step(mask) => {
+                    let mut waits = 0;
+                    for (entry, (net, value)) in plant.steps[taken].set.iter().enumerate() {
+                        if mask == u64::MAX || mask >> entry & 1 == 1 {
+                            put(&mut self.words, *net as usize, *value);
+                        } else if bit(&self.words, *net as usize) != *value {
+                            waits |= 1 << entry;
+                        }
+                    }
+                    KeyMut { words: &mut self.words, layout }.set_skew(waits);
+                    taken += 1;
+                }
+                Mover::Late(entry) => {
+                    let (net, value) = plant.steps[taken - 1].set[entry as usize];
+                    put(&mut self.words, net as usize, value);
+                    let left = Key { words: &self.words, layout }.skew() & !(1 << entry);
+                    KeyMut { words: &mut self.words, layout }.set_skew(left);
+                }
+            }
+        }
+    }
+
+    /// Fires movers together out of a node; `words` has the values after it.
+    fn fire_so(&mut self, node: u32, agents: &[Agent], movers: &[Mover], stepping: usize) {
         let (old_key, at) = (self.found.nodes[node as usize].key, self.found.nodes[node as usize].at);
         let (plant, layout) = (self.plant, self.layout);
         let info = &self.known.infos[old_key as usize];
@@ -453,87 +596,95 @@ impl<'a, W: Watch> Explorer<'a, W> {
         self.work.load(size, &self.matrices[at..at + size * size]);
         let key = self.found.key(old_key);
         let steps = key.steps();
-        let step = movers.iter().any(|mover| matches!(mover, Mover::Step(_)));
+        let step = stepping > 0;
+        let late = movers.iter().any(|mover| matches!(mover, Mover::Late(_)));
         if agents.is_empty()
             && let PlantPlace::Rest(wait) = plant.steps[steps].place
         {
             self.work.shift(wait);
         }
         for agent in agents {
-            let late = matches!(agent.mover, Mover::Late(_));
-            let able = if late {
-                self.work.bound(0, agent.row, zone::BELOW_ZERO)
-            } else {
-                self.work.at_least(agent.row, agent.min)
+            let able = match agent.mover {
+                Mover::Late(_) => self.work.bound(0, agent.row, self.semantics.later()),
+                _ => self.work.at_least(agent.row, self.semantics.due(agent.min)),
             };
-            if !able {
+            // arrivals on one wire come one after the other
+            let apart = match agent.mover {
+                Mover::Arrival(wire) if key.apart(wire as usize) => info.row(Slot::Apart(wire)),
+                _ => 0,
+            };
+            if !able || apart > 0 && !self.work.bound(0, apart, self.semantics.later()) {
                 return;
             }
         }
         if step {
+            // those of one instant come together, and before everything else
             let fired = info.row(Slot::Fired);
-            if fired > 0 && !self.work.bound(0, fired, zone::BELOW_ZERO) {
-                return;
+            let since = if steps > 0 { info.row(Slot::Since) } else { 0 };
+            for row in [fired, since] {
+                if row > 0 && !self.work.bound(0, row, self.semantics.later()) {
+                    return;
+                }
             }
-            let since = info.row(Slot::Since);
-            let able = match tie {
-                Tie::None => true,
-                Tie::Same => self.work.bound(since, 0, zone::AT_MOST_ZERO),
-                Tie::Later => self.work.bound(0, since, zone::BELOW_ZERO),
-            };
-            if !able {
-                return;
+            let start = info.row(Slot::Start);
+            for other in &plant.steps[steps + 1..steps + stepping] {
+                if let PlantPlace::At(ticks) = other.place
+                    && !self.work.at_least(start, ticks.min)
+                {
+                    return;
+                }
             }
         }
 
-        // the values after it
-        self.words.copy_from_slice(key.words);
-        let mut next = KeyMut { words: &mut self.words, layout };
-        let mut late = false;
-        let mut room = true;
+        // what is under way
         let mut changed: Vec<u32> = Vec::with_capacity(movers.len());
-        for mover in movers {
-            match *mover {
-                Mover::Gate(gate) => changed.push((plant.inputs + gate as usize) as u32),
-                Mover::Arrival(wire) => {
-                    changed.push((plant.nets.len() + wire as usize) as u32);
-                    room &= next.add_flights(wire as usize, -1);
-                }
-                Mover::Overtaking(wire, _) => room &= next.add_flights(wire as usize, -2),
-                Mover::Step(mask) => {
-                    let mut waits = 0;
-                    for (entry, (net, value)) in plant.steps[steps].set.iter().enumerate() {
-                        if bit(key.values(), *net as usize) == *value {
-                            continue;
-                        }
-                        if mask == u64::MAX || mask >> entry & 1 == 1 {
-                            changed.push(*net);
-                        } else {
-                            waits |= 1 << entry;
-                        }
+        for at in 0..layout.values {
+            let mut differ = key.words[at] ^ self.words[at];
+            while differ != 0 {
+                changed.push((64 * at) as u32 + differ.trailing_zeros());
+                differ &= differ - 1;
+            }
+        }
+        for (w, wire) in plant.wires.iter().enumerate() {
+            let arrives = movers.contains(&Mover::Arrival(w as u32));
+            let sets_out = bit(key.values(), wire.net as usize) != bit(&self.words, wire.net as usize);
+            let first = u8::from(arrives);
+            let mut flights = key.flights(w) - first;
+            let due = |place: u8| {
+                let row = info.row(Slot::Flight(w as u32, place));
+                (row, key::flight_delay(plant, key.values(), w, place))
+            };
+            let mut apart =
+                key.apart(w) && !arrives && self.work.at(0, info.row(Slot::Apart(w as u32))) == zone::AT_MOST_ZERO;
+            if arrives && flights > 0 {
+                let (row, delay) = due(1);
+                apart = self.work.may_reach(row, delay.min);
+            }
+            if sets_out {
+                let over = movers.iter().find_map(|mover| match mover {
+                    Mover::Overtaking(wire, over) if *wire == w as u32 => Some(*over),
+                    _ => None,
+                });
+                let over = over.unwrap_or(0);
+                let delay = wire.delay[usize::from(bit(&self.words, wire.net as usize))];
+                for place in 0..flights {
+                    let (row, before) = due(first + place);
+                    let able = if place < flights - over {
+                        self.work.bound(0, row, zone::below(delay.max - before.min))
+                    } else {
+                        self.work.bound(row, 0, zone::at_most(before.max - delay.min))
+                    };
+                    if !able {
+                        return;
                     }
-                    next.set_skew(waits);
                 }
-                Mover::Late(entry) => {
-                    late = true;
-                    changed.push(plant.steps[steps - 1].set[entry as usize].0);
-                    let left = Key { words: next.words, layout }.skew() & !(1 << entry);
-                    next.set_skew(left);
-                }
+                flights = flights - over + u8::from(over.is_multiple_of(2));
             }
-        }
-        for signal in &changed {
-            let value = !bit(next.words, *signal as usize);
-            put(next.words, *signal as usize, value);
-            if let Some(leads) = plant.leads.get(*signal as usize) {
-                for wire in leads {
-                    room &= next.add_flights(*wire as usize, 1);
-                }
+            if flights > key::FLIGHTS {
+                self.end(Ended::InFlight);
+                return;
             }
-        }
-        if !room {
-            self.end(Ended::InFlight);
-            return;
+            KeyMut { words: &mut self.words, layout }.set_flights(w, flights, apart && flights > 0);
         }
         let mut excited = info.excited.clone();
         let mut again = |gate: usize| put(&mut excited, gate, key::excited(plant, &self.words, gate));
@@ -551,7 +702,8 @@ impl<'a, W: Watch> Explorer<'a, W> {
                 && !bit(&excited, gate as usize)
                 && !movers.contains(&agent.mover)
             {
-                if !self.work.bound(agent.row, 0, zone::below(agent.max)) {
+                let most = self.semantics.cancelled(gate_max(plant, key.values(), gate as usize));
+                if !self.work.bound(agent.row, 0, most) {
                     return;
                 }
                 self.disabled.push((gate, agent.row));
@@ -561,7 +713,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
         for (slot, row) in info.slots.iter().zip(1..) {
             if let Slot::Cool(gate) = slot
                 && bit(&excited, *gate as usize)
-                && !self.work.bound(0, row, zone::BELOW_ZERO)
+                && !self.work.bound(0, row, self.semantics.later())
             {
                 return;
             }
@@ -570,7 +722,11 @@ impl<'a, W: Watch> Explorer<'a, W> {
         let could_excite = |gate: u32| {
             info.agents.iter().any(|agent| {
                 let reads = |signal: u32| plant.gates[gate as usize].reads.iter().any(|read| read.0 == signal);
-                !movers.contains(&agent.mover)
+                let gone = match agent.mover {
+                    Mover::Step(_) => step,
+                    mover => movers.contains(&mover),
+                };
+                !gone
                     && due(agent)
                     && match agent.mover {
                         Mover::Gate(other) => {
@@ -578,7 +734,11 @@ impl<'a, W: Watch> Explorer<'a, W> {
                         }
                         Mover::Arrival(wire) => reads((plant.nets.len() + wire as usize) as u32),
                         Mover::Overtaking(..) => false,
-                        Mover::Step(_) => plant.steps[steps].set.iter().any(|(net, _)| reads(*net)),
+                        Mover::Step(_) => {
+                            let all = &plant.steps[steps..steps + agent.steps as usize];
+                            let late = plant.steps[..steps].last().filter(|_| key.skew() != 0);
+                            all.iter().chain(late).any(|step| step.set.iter().any(|(net, _)| reads(*net)))
+                        }
                         Mover::Late(entry) => reads(plant.steps[steps - 1].set[entry as usize].0),
                     }
             })
@@ -591,8 +751,9 @@ impl<'a, W: Watch> Explorer<'a, W> {
                 next.set_cools(gate as usize, cools);
             }
         }
+        let cools = self.semantics.cools();
         let cooling: Vec<u32> =
-            self.disabled.iter().map(|(gate, _)| *gate).filter(|gate| could_excite(*gate)).collect();
+            self.disabled.iter().map(|(gate, _)| *gate).filter(|gate| cools && could_excite(*gate)).collect();
         for gate in &cooling {
             next.set_cools(*gate as usize, true);
         }
@@ -601,24 +762,23 @@ impl<'a, W: Watch> Explorer<'a, W> {
 
         let before = key.values();
         let (watched, origin, rested) = (key.watch(), key.origin(), info.rest);
-        let same_instant = tie == Tie::Same;
-        let touches = step && plant.steps[steps].set.iter().any(|(net, value)| bit(before, *net as usize) != *value);
         let block = Block {
             plant,
             before,
             after: &self.words[..layout.values],
             step: step.then_some(steps),
-            same_instant,
+            steps: stepping,
             rested,
             late,
             disabled: &self.disabled,
             zone: &self.work,
             row: info.watch_row,
         };
+        let touches = block.touches();
         self.hits.clear();
         let hits = &mut self.hits;
         let (state, fates) = self.watch.block(watched, &block, &mut |hit| hits.push(hit));
-        let new_origin = match (touches && !same_instant, rested) {
+        let new_origin = match (touches, rested) {
             (false, _) => origin,
             (true, false) => NOWHERE,
             (true, true) => {
@@ -626,11 +786,11 @@ impl<'a, W: Watch> Explorer<'a, W> {
                 self.state_number(&before)
             }
         };
-        if touches && !rested && !same_instant {
+        if touches && !rested {
             self.found.cut[steps] = true;
         }
         let mut next = KeyMut { words: &mut self.words, layout };
-        next.set_step(steps + usize::from(step), new_origin);
+        next.set_step(steps + stepping, new_origin);
         next.set_watch(state, fired);
         let number = self.intern(&excited);
 
@@ -638,25 +798,24 @@ impl<'a, W: Watch> Explorer<'a, W> {
         let (old, new) = (&self.known.infos[old_key as usize], &self.known.infos[number as usize]);
         let old_words = self.found.key(old_key);
         let remaining = |wire: u32| {
-            let gone = move |place: &u8| {
-                let first = movers.contains(&Mover::Arrival(wire)) && *place == 0;
-                let over = movers
-                    .iter()
-                    .any(|m| matches!(m, Mover::Overtaking(w, k) if *w == wire && (*place == *k || *place + 1 == *k)));
-                first || over
-            };
-            (0..old_words.flights(wire as usize)).filter(move |place| !gone(place))
+            let first = u8::from(movers.contains(&Mover::Arrival(wire)));
+            let over = movers.iter().find_map(|mover| match mover {
+                Mover::Overtaking(other, over) if *other == wire => Some(*over),
+                _ => None,
+            });
+            (first, old_words.flights(wire as usize) - over.unwrap_or(0))
         };
         self.from.clear();
         for slot in &new.slots {
             let row = match *slot {
                 Slot::Gate(gate) if movers.contains(&Mover::Gate(gate)) => 0,
                 Slot::Flight(wire, place) => {
-                    let was = remaining(wire).nth(place as usize);
-                    was.map_or(0, |was| old.row(Slot::Flight(wire, was)))
+                    let (first, end) = remaining(wire);
+                    if first + place < end { old.row(Slot::Flight(wire, first + place)) } else { 0 }
                 }
                 Slot::Since if step => 0,
                 Slot::Fired => 0,
+                Slot::Apart(wire) if movers.contains(&Mover::Arrival(wire)) => 0,
                 Slot::Cool(gate) if cooling.contains(&gate) => 0,
                 Slot::Watch(clock) => match fates[clock as usize] {
                     Fate::Keep(place) => old.row(Slot::Watch(place)),
@@ -676,7 +835,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
         let key = self.found.key(number);
         let (state, rest, steps, row) = (key.watch(), info.rest, key.steps(), info.watch_row);
         self.lasting.load(self.entry.size, &self.entry.bounds);
-        let lasting = info.agents.iter().all(|agent| self.lasting.bound(agent.row, 0, zone::below(agent.max)));
+        let lasting = info.limits.iter().all(|(row, most)| self.lasting.bound(*row, 0, self.semantics.lasts(*most)));
         if lasting {
             let arrival = Arrival { plant: self.plant, values: key.values(), rest, steps, zone: &self.lasting, row };
             let hits = &mut self.hits;
@@ -695,7 +854,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
         let mut goes_on = true;
         if !waits {
             let info = &self.known.infos[number as usize];
-            self.entry.elapse(info.agents.iter().map(|agent| (agent.row, agent.max)));
+            self.entry.elapse(&info.limits);
             let hits = &mut self.hits;
             let (new_state, left) = self.watch.elapsed(state, &mut self.entry, row, &mut |hit| hits.push(hit));
             goes_on = left;
@@ -748,6 +907,7 @@ impl<'a, W: Watch> Explorer<'a, W> {
         let mut nodes = std::mem::take(&mut self.known.nodes[number as usize]);
         let mut known = None;
         let mut joined = false;
+        let next = self.found.nodes.len() as u32;
         nodes.retain(|node| {
             let at = self.found.nodes[*node as usize].at;
             let kept = &mut self.matrices[at..at + size];
@@ -763,6 +923,10 @@ impl<'a, W: Watch> Explorer<'a, W> {
                 }
                 Merge::Inclusion if zone::within(kept, &self.entry.bounds) => {
                     self.found.nodes[*node as usize].gone = true;
+                    if self.mode.edges {
+                        // it leads on as the larger one does, which is the next node
+                        self.found.edges.push((*node, next));
+                    }
                     false
                 }
                 Merge::Inclusion => true,

@@ -38,6 +38,13 @@ impl Joint {
         if info.near.is_empty() {
             info.near = near(plant, info, key);
         }
+        // steps come with or without others at their instant, and with all inputs that are late
+        let of = |is: fn(&Mover) -> bool| {
+            let all = info.agents.iter().enumerate();
+            all.filter(|(_, agent)| is(&agent.mover)).fold(0u64, |all, (i, _)| all | 1 << i)
+        };
+        let steps = of(|mover| matches!(mover, Mover::Step(_)));
+        let late = of(|mover| matches!(mover, Mover::Late(_)));
         let mut complete = true;
         let mut open: Vec<u64> = (0..info.agents.len()).filter(|i| enabled >> i & 1 == 1).map(|i| 1 << i).collect();
         let mut seen: FxHashSet<u64> = open.iter().copied().collect();
@@ -52,6 +59,10 @@ impl Joint {
             while next != 0 {
                 let grown = set | 1 << next.trailing_zeros();
                 next &= next - 1;
+                let stepping = (grown & steps).count_ones();
+                if stepping > 1 || stepping == 1 && grown & late != 0 {
+                    continue;
+                }
                 if !seen.insert(grown) {
                     continue;
                 }
@@ -74,7 +85,16 @@ fn signals(plant: &Plant, key: Key<'_>, agent: &Agent) -> Vec<(u32, bool)> {
         Mover::Gate(gate) => flipped(plant.inputs + gate as usize),
         Mover::Arrival(wire) => flipped(plant.nets.len() + wire as usize),
         Mover::Overtaking(..) => Vec::new(),
-        Mover::Step(_) => plant.steps[key.steps()].set.clone(),
+        Mover::Step(_) => {
+            let taken = key.steps();
+            let late = plant.steps[..taken].last().filter(|_| key.skew() != 0);
+            let late = late.into_iter().flat_map(|step| step.set.iter().enumerate());
+            let late = late.filter(|(entry, _)| key.skew() >> entry & 1 == 1).map(|(_, set)| *set);
+            late.chain(
+                plant.steps[taken..taken + agent.steps as usize].iter().flat_map(|step| step.set.iter().copied()),
+            )
+            .collect()
+        }
         Mover::Late(entry) => vec![plant.steps[key.steps() - 1].set[entry as usize]],
     }
 }
@@ -132,6 +152,11 @@ fn is_irreducible(plant: &Plant, key: Key<'_>, info: &Info, set: u64) -> bool {
     };
     let step = (0..info.agents.len()).filter(|i| matches!(info.agents[*i].mover, Mover::Step(_)));
     let step = step.fold(0u64, |all, i| all | 1 << i) & set;
+    // with skew, a part of the inputs may change: all such sets are tried
+    let skewed = |agent: &Agent| plant.steps[key.steps()..][..agent.steps as usize].iter().any(|step| step.skew > 0);
+    if step != 0 && skewed(&info.agents[step.trailing_zeros() as usize]) {
+        return true;
+    }
     let whole = after(plant, key, info, set);
     // gates outside that are excited before and after
     let kept: Vec<usize> = gates(set, false).filter(|gate| excited(plant, &whole, *gate)).collect();

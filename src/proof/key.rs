@@ -1,6 +1,7 @@
 //! The discrete part of an explored state, as words: values, step, what is on its way, what a watch remembers.
 
-use super::plant::{Plant, PlantPlace};
+use super::plant::{Plant, PlantPlace, Ticks};
+use super::zone::{self, Code};
 
 /// Where each part is in the words of a key.
 #[derive(Clone, Copy, Debug)]
@@ -25,6 +26,8 @@ pub(super) struct Layout {
 pub(super) const FLIGHTS: u8 = 16;
 
 const FIRED: u64 = 1 << 32;
+/// In the byte of a wire: the time since its last arrival is kept.
+const APART: u8 = 1 << 7;
 
 impl Layout {
     pub fn of(plant: &Plant) -> Layout {
@@ -92,8 +95,17 @@ impl<'a> Key<'a> {
         self.words[self.layout.skew]
     }
 
-    pub fn flights(&self, wire: usize) -> u8 {
+    fn of_wire(&self, wire: usize) -> u8 {
         (self.words[self.layout.flights + wire / 8] >> (8 * (wire % 8))) as u8
+    }
+
+    pub fn flights(&self, wire: usize) -> u8 {
+        self.of_wire(wire) & !APART
+    }
+
+    /// Does it keep the time since the last arrival on a wire?
+    pub fn apart(&self, wire: usize) -> bool {
+        self.of_wire(wire) & APART != 0
     }
 
     pub fn cools(&self, gate: usize) -> bool {
@@ -124,13 +136,12 @@ impl KeyMut<'_> {
         self.words[self.layout.skew] = mask;
     }
 
-    /// Adds to the arrivals under way. False: there are too many.
-    pub fn add_flights(&mut self, wire: usize, by: i8) -> bool {
+    /// Sets the number of changes under way on a wire, at most [`FLIGHTS`], and whether the time since its last arrival is
+    /// kept.
+    pub fn set_flights(&mut self, wire: usize, flights: u8, apart: bool) {
         let (at, shift) = (self.layout.flights + wire / 8, 8 * (wire % 8));
-        let old = (self.words[at] >> shift) as u8;
-        let new = old.wrapping_add_signed(by);
-        self.words[at] = self.words[at] & !(0xFF << shift) | u64::from(new) << shift;
-        new <= FLIGHTS
+        let byte = flights | if apart { APART } else { 0 };
+        self.words[at] = self.words[at] & !(0xFF << shift) | u64::from(byte) << shift;
     }
 
     pub fn set_cools(&mut self, gate: usize, cools: bool) {
@@ -153,6 +164,8 @@ pub(super) enum Slot {
     Fired,
     /// Time since a gate was disabled that could be excited again at once.
     Cool(u32),
+    /// Time since the last arrival on a wire on which the next could be due at once.
+    Apart(u32),
     /// A clock of the watch.
     Watch(u8),
 }
@@ -164,7 +177,8 @@ pub enum Mover {
     Gate(u32),
     /// The first change under way on a wire arrives.
     Arrival(u32),
-    /// On this wire the change with so many before it comes due with or before the one before it: both are gone.
+    /// Beside what fires: the change that sets out on this wire would arrive with or before so many of those before it.
+    /// They are gone; and so is it if their number is odd.
     Overtaking(u32, u8),
     /// The next step comes; of the inputs that it sets, those of this mask (a bit an entry) change at once.
     Step(u64),
@@ -179,7 +193,8 @@ pub(super) struct Agent {
     /// Row of its clock.
     pub row: usize,
     pub min: i64,
-    pub max: i64,
+    /// For a step: how many steps come at its instant, itself counted.
+    pub steps: u8,
 }
 
 /// What follows from a key alone.
@@ -189,6 +204,8 @@ pub(super) struct Info {
     pub slots: Vec<Slot>,
     /// What may happen next.
     pub agents: Vec<Agent>,
+    /// How far clocks may run.
+    pub limits: Vec<(usize, Code)>,
     /// For each agent those that it may have to happen together with, a bit an agent; empty until asked for.
     pub near: Vec<u64>,
     /// The excited gates, a bit a gate.
@@ -229,53 +246,65 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
             let delay = plant.gates[gate].delay[usize::from(!bit(values, plant.inputs + gate))];
             info.slots.push(Slot::Gate(gate as u32));
             let mover = Mover::Gate(gate as u32);
-            info.agents.push(Agent { mover, row: info.slots.len(), min: delay.min, max: delay.max });
+            info.agents.push(Agent { mover, row: info.slots.len(), min: delay.min, steps: 0 });
+            info.limits.push((info.slots.len(), zone::at_most(delay.max)));
         }
     }
-    for (w, wire) in plant.wires.iter().enumerate() {
-        let end = bit(values, plant.nets.len() + w);
+    for w in 0..plant.wires.len() {
         for place in 0..key.flights(w) {
-            // arrivals take turns: the first brings what the end has not
-            let delay = wire.delay[usize::from(end == (place % 2 == 1))];
+            let delay = flight_delay(plant, values, w, place);
             info.slots.push(Slot::Flight(w as u32, place));
-            let mover = if place == 0 { Mover::Arrival(w as u32) } else { Mover::Overtaking(w as u32, place) };
-            let agent = Agent { mover, row: info.slots.len(), min: delay.min, max: delay.max };
-            // in order, those behind cannot be due before the first has come
-            if place == 0 || !wire.in_order {
-                info.agents.push(agent);
+            let row = info.slots.len();
+            if place == 0 {
+                info.agents.push(Agent { mover: Mover::Arrival(w as u32), row, min: delay.min, steps: 0 });
+                info.limits.push((row, zone::at_most(delay.max)));
+            } else {
+                // those before it come first
+                info.limits.push((row, zone::below(delay.max)));
             }
         }
     }
     info.rest = info.slots.is_empty() && key.skew() == 0;
-    let next = plant.steps.get(key.steps());
-    let place = next.map(|step| step.place);
+    let taken = key.steps();
+    let place = plant.steps.get(taken).map(|step| step.place);
     let skewed = key.skew() != 0;
     let timed = matches!(place, Some(PlantPlace::At(_) | PlantPlace::After(_)));
     info.timed = timed;
-    let since = skewed || timed;
-    if since {
+    if skewed || timed {
         info.slots.push(Slot::Since);
     }
-    let since_row = info.slots.len();
+    let since = info.slots.len();
     if skewed {
-        let last = &plant.steps[key.steps() - 1];
+        let last = &plant.steps[taken - 1];
+        info.limits.push((since, zone::at_most(last.skew)));
         for entry in 0..last.set.len() as u32 {
             if key.skew() >> entry & 1 == 1 {
-                let mover = Mover::Late(entry);
-                info.agents.push(Agent { mover, row: since_row, min: 0, max: last.skew });
+                info.agents.push(Agent { mover: Mover::Late(entry), row: since, min: 0, steps: 0 });
             }
         }
     }
-    if let (Some(PlantPlace::After(ticks)), Some(step), false) = (place, next, skewed) {
-        let mover = Mover::Step(step.whole());
-        info.agents.push(Agent { mover, row: since_row, min: ticks.min, max: ticks.max });
-    }
     // `at` steps are never behind one that waits for rest
-    if plant.steps[key.steps()..].iter().any(|step| matches!(step.place, PlantPlace::At(_))) {
+    if plant.steps[taken..].iter().any(|step| matches!(step.place, PlantPlace::At(_))) {
         info.slots.push(Slot::Start);
-        if let (Some(PlantPlace::At(ticks)), Some(step), false) = (place, next, skewed) {
-            let mover = Mover::Step(step.whole());
-            info.agents.push(Agent { mover, row: info.slots.len(), min: ticks.min, max: ticks.max });
+    }
+    let timed = match place {
+        Some(PlantPlace::After(ticks)) => Some((since, ticks)),
+        Some(PlantPlace::At(ticks)) => Some((info.slots.len(), ticks)),
+        _ => None,
+    };
+    if let Some((row, ticks)) = timed {
+        // with inputs still to change it can come at the instant of the last of them only
+        let touching = match place {
+            Some(PlantPlace::After(ticks)) => skewed && ticks.min <= plant.steps[taken - 1].skew,
+            _ => skewed,
+        };
+        if !skewed {
+            info.limits.push((row, zone::at_most(ticks.max)));
+        }
+        if !skewed || touching {
+            for steps in plant.at_once(taken) {
+                info.agents.push(Agent { mover: Mover::Step(u64::MAX), row, min: ticks.min, steps });
+            }
         }
     }
     if key.fired() {
@@ -284,7 +313,15 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
     if key.any_cools() {
         info.slots.extend((0..plant.gates.len()).filter(|gate| key.cools(*gate)).map(|gate| Slot::Cool(gate as u32)));
     }
+    info.slots.extend((0..plant.wires.len()).filter(|wire| key.apart(*wire)).map(|wire| Slot::Apart(wire as u32)));
     info.watch_row = info.slots.len() + 1;
     info.slots.extend((0..watch_clocks).map(Slot::Watch));
     info
+}
+
+/// The delay range of a change under way on a wire with so many before it.
+pub(super) fn flight_delay(plant: &Plant, values: &[u64], wire: usize, place: u8) -> Ticks {
+    // changes take turns: the first brings what the end has not
+    let end = bit(values, plant.nets.len() + wire);
+    plant.wires[wire].delay[usize::from(end == (place % 2 == 1))]
 }

@@ -1,9 +1,11 @@
 //! All delays in their ranges at once: bounded-delay verdicts by zones.
 
 mod claim;
+mod cycles;
 mod explore;
 mod joint;
 mod key;
+mod oscillations;
 mod outcomes;
 mod plant;
 mod prove;
@@ -15,11 +17,14 @@ mod witness;
 pub mod zone;
 
 pub use claim::{Call, Claim, Proof, Subject, Variation, WindowProof};
-pub use explore::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, Rest, explore};
+pub use cycles::{Cycle, RestVerdict, comes_to_rest};
+pub use explore::{
+    Budget, Ended, Exact, Explored, Fired, Merge, Mode, NOWHERE, Rest, Semantics, explore, explore_under,
+};
 pub use key::Mover;
 pub use plant::{NotCovered, Plant, PlantGate, PlantPlace, PlantStep, PlantWire, Ticks};
 pub use prove::{Spend, prove};
 pub use system::{Form, Point, Points, Row, Sense, System, Unknown};
 pub use watch::{Arrival, Block, Fate, Nothing, SAME, Watch};
-pub use witness::{Case, case, one_draw};
 pub use watches::{Answered, Apart, BeforeRest, Edge, Late, Moved, Moves, Settles, Shows, ShowsLonger, Swallows, Width};
+pub use witness::{Case, case, one_draw};

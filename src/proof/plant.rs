@@ -99,13 +99,6 @@ pub struct PlantStep {
     pub others: bool,
 }
 
-impl PlantStep {
-    /// The mask of all inputs that it sets, a bit an entry.
-    pub fn whole(&self) -> u64 {
-        if self.skew == 0 { u64::MAX } else { (1 << self.set.len()) - 1 }
-    }
-}
-
 /// The part of a scenario that an exploration works on.
 #[derive(Clone, Debug)]
 pub struct Plant {
@@ -245,6 +238,30 @@ impl Plant {
             initial,
             power_up: scenario.begin_window().is_some(),
         })
+    }
+
+    /// How many steps can come at the instant of this one, itself counted: each number that is possible.
+    pub(super) fn at_once(&self, step: usize) -> Vec<u8> {
+        let mut numbers = Vec::new();
+        for last in step..self.steps.len().min(step + 255) {
+            let (may_join, may_wait) = match self.steps.get(last + 1).map(|next| next.place) {
+                Some(PlantPlace::After(ticks)) => (ticks.min == 0 && self.steps[last].skew == 0, ticks.max > 0),
+                Some(PlantPlace::At(ticks)) => match self.steps[last].place {
+                    PlantPlace::At(before) => {
+                        (ticks.min <= before.max && self.steps[last].skew == 0, ticks.max > before.min)
+                    }
+                    _ => (self.steps[last].skew == 0, true),
+                },
+                _ => (false, true),
+            };
+            if may_wait {
+                numbers.push((last + 1 - step) as u8);
+            }
+            if !may_join {
+                break;
+            }
+        }
+        numbers
     }
 
     /// Number of signals: nets and wire ends.

@@ -9,6 +9,7 @@ use std::collections::BTreeMap;
 use std::time::{Duration, Instant};
 
 use super::claim::{Call, Claim, Proof, Subject, Variation, WindowProof};
+use super::cycles::{RestVerdict, comes_to_rest};
 use super::explore::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, explore};
 use super::key::bit;
 use super::plant::Plant;
@@ -66,7 +67,7 @@ pub(super) struct Prover<'a> {
     pub(super) scenario: &'a Scenario,
     program: &'a Program,
     pub(super) asked: &'a Asked,
-    budget: Budget,
+    pub(super) budget: Budget,
     pub(super) proof: Proof,
 }
 
@@ -122,7 +123,7 @@ impl<'a> Prover<'a> {
         }
     }
 
-    fn why(&self, ended: Ended) -> String {
+    pub(super) fn why(&self, ended: Ended) -> String {
         match ended {
             Ended::Complete | Ended::Hit => "nothing stopped it".to_string(),
             Ended::Zones => format!("the budget of {} zones ran out", self.budget.zones),
@@ -298,7 +299,7 @@ impl<'a> Prover<'a> {
             }
             RuleKey::Reference => self.reference(questions),
             RuleKey::CriticalRace => self.races(questions),
-            RuleKey::Oscillation => not_covered("oscillation is not part of the proof yet"),
+            RuleKey::Oscillation => self.oscillation(questions),
             RuleKey::When => not_covered("steps that wait for a pattern are not part of the proof yet"),
             RuleKey::BeforeRest => self.before_rest(questions),
         }
@@ -514,7 +515,7 @@ impl<'a> Prover<'a> {
     }
 
     /// Does a run of this case break the question?
-    fn shows(&self, instance: &Instance, question: u32) -> bool {
+    pub(super) fn shows(&self, instance: &Instance, question: u32) -> bool {
         let mut observers = (Trace::default(), Judge::new(self.scenario, self.asked, Answers::default()));
         if !self.program.machine().run(instance, &self.budget.control, &mut observers) {
             return false;
@@ -568,16 +569,13 @@ impl<'a> Prover<'a> {
             }
             window.join(states);
         }
-        let edges = self.explore(&world, &Nothing, Mode { edges: true, ..Mode::default() })?;
-        let (joint, ties) = match is_acyclic(&edges) {
-            true => (true, false),
-            false => {
-                let apart = self.explore(&world, &Nothing, Mode { edges: true, joint: false, ..Mode::default() })?;
-                if !is_acyclic(&apart) {
-                    windows.iter_mut().for_each(|window| window.settling = Some(None));
-                    return Ok(());
-                }
-                (false, true)
+        // without an end there is no greatest settling time; what takes exactly equal times is left out
+        let (joint, ties) = match comes_to_rest(&world.plant, &world.starts, &self.budget) {
+            RestVerdict::Always => (true, false),
+            RestVerdict::Cycles(cycles) if cycles.iter().all(|cycle| cycle.needs_ties == Some(true)) => (false, true),
+            RestVerdict::Cycles(_) | RestVerdict::Undecided(_) => {
+                windows.iter_mut().for_each(|window| window.settling = Some(None));
+                return Ok(());
             }
         };
         let watch = Settles::default();
@@ -665,27 +663,4 @@ impl Window {
 /// A partial state by the numbers of the plant.
 fn local(plant: &Plant, state: &Alternative) -> Vec<(u32, bool)> {
     state.iter().filter_map(|(net, value)| plant.local(*net).map(|net| (net, *value))).collect()
-}
-
-/// Does no way lead back to where it came from?
-fn is_acyclic(found: &Explored) -> bool {
-    let nodes = found.edges.iter().map(|(a, b)| a.max(b) + 1).max().unwrap_or(0) as usize;
-    let mut next: Vec<Vec<u32>> = vec![Vec::new(); nodes];
-    let mut into = vec![0u32; nodes];
-    for (from, to) in &found.edges {
-        next[*from as usize].push(*to);
-        into[*to as usize] += 1;
-    }
-    let mut open: Vec<u32> = (0..nodes as u32).filter(|node| into[*node as usize] == 0).collect();
-    let mut done = 0;
-    while let Some(node) = open.pop() {
-        done += 1;
-        for other in &next[node as usize] {
-            into[*other as usize] -= 1;
-            if into[*other as usize] == 0 {
-                open.push(*other);
-            }
-        }
-    }
-    done == nodes
 }

@@ -252,27 +252,20 @@ impl Walk<'_> {
         launched.plus(self.unknown(Unknown::Wire(wire, rises), range))
     }
 
-    fn mover_time(&mut self, number: usize, mover: Mover) -> Form {
+    /// When a mover comes; `step` is the number of the step, if it is one, and `before` when the step before it came.
+    fn mover_time(&mut self, number: usize, mover: Mover, step: usize, before: &Form) -> Form {
         match mover {
             Mover::Gate(gate) => {
                 let since = self.since[gate as usize].clone().unwrap_or_default();
                 self.due(gate, &since)
             }
             Mover::Arrival(wire) => self.arrives(wire, 0),
-            Mover::Overtaking(wire, place) => {
-                let due = self.arrives(wire, place);
-                let before = self.arrives(wire, place - 1);
-                self.system.push(due.minus(&before), Sense::AtMost);
-                due
-            }
+            Mover::Overtaking(..) => unreachable!("it comes with the change that sets out"),
             Mover::Step(_) => {
-                let step = self.steps as u32;
-                match self.plant.steps[self.steps].place {
-                    PlantPlace::At(range) => Form::default().plus(self.unknown(Unknown::Place(step), range)),
-                    PlantPlace::After(range) => {
-                        let before = self.step_time.clone();
-                        before.plus(self.unknown(Unknown::Place(step), range))
-                    }
+                let place = Unknown::Place(step as u32);
+                match self.plant.steps[step].place {
+                    PlantPlace::At(range) => Form::default().plus(self.unknown(place, range)),
+                    PlantPlace::After(range) => before.plus(self.unknown(place, range)),
                     PlantPlace::Rest(wait) => {
                         // rest begins with the last event
                         let rest = number.checked_sub(1).map(|last| self.system.times[last].clone()).unwrap_or_default();
@@ -289,24 +282,51 @@ impl Walk<'_> {
             Mover::Late(entry) => {
                 let step = self.steps - 1;
                 let range = Ticks { min: 0, max: self.plant.steps[step].skew };
-                let before = self.step_time.clone();
                 before.plus(self.unknown(Unknown::Late(step as u32, entry), range))
             }
+        }
+    }
+
+    /// A change sets out on a wire, and removes so many of those before it.
+    fn sets_out(&mut self, wire: u32, rises: bool, over: usize, time: &Form) {
+        let range = self.plant.wires[wire as usize].delay[usize::from(rises)];
+        let due = time.plus(self.unknown(Unknown::Wire(wire, rises), range));
+        let kept = self.flights[wire as usize].len() - over;
+        for place in 0..self.flights[wire as usize].len() {
+            let before = self.arrives(wire, place as u8);
+            if place >= kept {
+                self.system.push(due.minus(&before), Sense::AtMost);
+            } else if place + 1 == kept {
+                let form = before.minus(&due);
+                if form.constant > 0 || form.terms.iter().any(|term| term.1 > 0) || form.terms.is_empty() {
+                    self.system.push(form, Sense::Below);
+                }
+            }
+        }
+        self.flights[wire as usize].truncate(kept);
+        if over.is_multiple_of(2) {
+            self.flights[wire as usize].push_back(time.clone());
         }
     }
 
     fn block(&mut self, number: usize, block: &Fired) {
         let plant = self.plant;
         let mut time: Option<Form> = None;
-        for mover in &block.movers {
-            let due = self.mover_time(number, *mover);
+        // steps of one instant come one after the other
+        let (mut taken, mut before) = (self.steps, self.step_time.clone());
+        for mover in block.movers.iter().filter(|mover| !matches!(mover, Mover::Overtaking(..))) {
+            let due = self.mover_time(number, *mover, taken, &before);
+            if matches!(mover, Mover::Step(_)) {
+                taken += 1;
+                before = due.clone();
+            }
             match &time {
                 None => time = Some(due),
                 Some(time) => self.system.push(due.minus(time), Sense::Equal),
             }
         }
         let time = time.unwrap_or_default();
-        let step = block.movers.iter().any(|mover| matches!(mover, Mover::Step(_)));
+        let step = taken > self.steps;
         let rests = step && matches!(plant.steps[self.steps].place, PlantPlace::Rest(_));
         let changed: Vec<usize> = (0..plant.signals()).filter(|s| bit(&self.values, *s) != bit(&block.values, *s)).collect();
 
@@ -352,23 +372,25 @@ impl Walk<'_> {
                 Mover::Arrival(wire) => {
                     self.flights[wire as usize].pop_front();
                 }
-                Mover::Overtaking(wire, place) => {
-                    self.flights[wire as usize].remove(place as usize);
-                    self.flights[wire as usize].remove(place as usize - 1);
-                }
                 Mover::Gate(gate) => self.since[gate as usize] = None,
-                Mover::Step(_) | Mover::Late(_) => {}
+                Mover::Overtaking(..) | Mover::Step(_) | Mover::Late(_) => {}
             }
         }
         if step {
             self.step_time = time.clone();
-            self.steps += 1;
+            self.steps = taken;
         }
         for signal in &changed {
             put(&mut self.values, *signal, bit(&block.values, *signal));
             self.last[*signal] = Some(number);
+        }
+        for signal in &changed {
             for wire in plant.leads.get(*signal).into_iter().flatten() {
-                self.flights[*wire as usize].push_back(time.clone());
+                let over = block.movers.iter().find_map(|mover| match mover {
+                    Mover::Overtaking(other, over) if other == wire => Some(*over as usize),
+                    _ => None,
+                });
+                self.sets_out(*wire, bit(&block.values, *signal), over.unwrap_or(0), &time);
             }
         }
         for gate in 0..plant.gates.len() {

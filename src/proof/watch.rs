@@ -25,10 +25,10 @@ pub struct Block<'a> {
     pub before: &'a [u64],
     /// Values after.
     pub after: &'a [u64],
-    /// The step that is in it, by number.
+    /// The first step that is in it, by number.
     pub step: Option<usize>,
-    /// Is that step at the very instant of the one before it, and so in its window?
-    pub same_instant: bool,
+    /// How many steps come at that instant: they share a window.
+    pub steps: usize,
     /// Did nothing pend in the circuit before it?
     pub rested: bool,
     /// Do inputs change in it, of a step that came before?
@@ -48,10 +48,17 @@ impl Block<'_> {
         (before != after).then_some(after)
     }
 
-    /// Does the step in it change an input here, now or later?
+    /// Do the steps in it change an input here, now or later?
     pub fn touches(&self) -> bool {
-        let changes = |(net, value): &(u32, bool)| super::key::bit(self.before, *net as usize) != *value;
-        self.step.is_some_and(|step| self.plant.steps[step].set.iter().any(changes))
+        let Some(step) = self.step else { return false };
+        let steps = &self.plant.steps[step..step + self.steps];
+        // the last one to set an input decides
+        steps.iter().enumerate().any(|(at, step)| {
+            step.set.iter().any(|(net, value)| {
+                let again = steps[at + 1..].iter().any(|later| later.set.iter().any(|set| set.0 == *net));
+                !again && super::key::bit(self.before, *net as usize) != *value
+            })
+        })
     }
 }
 

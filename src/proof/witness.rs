@@ -75,7 +75,8 @@ pub fn case(scenario: &Scenario, plant: &Plant, system: &System, point: &Point, 
         }
     }
     // steps that the trace does not reach stay in order behind it
-    let reached = trace.iter().filter(|block| block.movers.iter().any(|mover| matches!(mover, Mover::Step(_)))).count();
+    let movers = trace.iter().flat_map(|block| &block.movers);
+    let reached = movers.filter(|mover| matches!(mover, Mover::Step(_))).count();
     for (step, place) in scenario.stimulus.steps.iter().zip(&mut instance.places).skip(reached) {
         if let Place::At(range) | Place::After(range) = &step.place {
             *place = range.max;

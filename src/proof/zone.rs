@@ -25,6 +25,11 @@ pub const fn below(c: i64) -> Code {
     2 * c
 }
 
+/// The same bound, not reached.
+pub const fn strictly(code: Code) -> Code {
+    code & !1
+}
+
 /// The bound on a sum of two differences.
 #[inline]
 pub const fn plus(a: Code, b: Code) -> Code {
@@ -108,16 +113,16 @@ impl Matrix {
         self.at(i, 0) > at_most(c)
     }
 
-    /// Lets time pass as long as every listed clock stays at or below its limit. The limits must hold now.
-    pub fn elapse(&mut self, limits: impl Iterator<Item = (usize, i64)> + Clone) {
+    /// Lets time pass as long as every listed clock keeps its bound. The bounds must hold now.
+    pub fn elapse(&mut self, limits: &[(usize, Code)]) {
         let n = self.size;
         for i in 1..n {
             self.bounds[i * n] = FREE;
         }
         for i in 1..n {
             let mut most = FREE;
-            for (clock, limit) in limits.clone() {
-                most = most.min(plus(self.bounds[i * n + clock], at_most(limit)));
+            for (clock, limit) in limits {
+                most = most.min(plus(self.bounds[i * n + clock], *limit));
             }
             self.bounds[i * n] = most;
         }
@@ -195,7 +200,7 @@ mod tests {
     #[test]
     fn two_clocks_that_start_together_stay_together() {
         let mut zone = Matrix::zero(2);
-        zone.elapse([(1, 5), (2, 9)].into_iter());
+        zone.elapse(&[(1, at_most(5)), (2, at_most(9))]);
         assert_eq!((zone.at(1, 0), zone.at(2, 0)), (at_most(5), at_most(5)));
         assert_eq!((zone.at(1, 2), zone.at(2, 1)), (at_most(0), at_most(0)));
         assert!(zone.may_reach(1, 5) && !zone.may_reach(1, 6) && !zone.may_pass(1, 5) && zone.may_pass(1, 4));
@@ -221,9 +226,9 @@ mod tests {
     #[test]
     fn the_hull_holds_both() {
         let mut a = Matrix::zero(1);
-        a.elapse([(1, 3)].into_iter());
+        a.elapse(&[(1, at_most(3))]);
         let mut b = Matrix::zero(1);
-        b.elapse([(1, 8)].into_iter());
+        b.elapse(&[(1, at_most(8))]);
         assert!(b.at_least(1, 6));
         let mut both = a.bounds.clone();
         hull(&mut both, &b.bounds);

@@ -2,6 +2,7 @@
 //! a record of all that an engine tells.
 
 pub mod explorer;
+pub mod grid;
 pub mod heard;
 pub mod random_rules;
 pub mod random_worlds;
@@ -13,3 +14,4 @@ pub mod slow_sweep;
 pub mod small_nets;
 pub mod spread;
 pub mod world;
+pub mod written;

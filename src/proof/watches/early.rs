@@ -17,8 +17,8 @@ impl Watch for BeforeRest {
     }
 
     fn block(&self, state: u32, block: &Block<'_>, hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
-        if let (Some(step), false, false) = (block.step, block.rested, block.same_instant) {
-            hit(step as u32 + 1);
+        if let (Some(step), false) = (block.step, block.rested) {
+            (step..step + block.steps).for_each(|step| hit(step as u32 + 1));
         }
         (state, SAME)
     }

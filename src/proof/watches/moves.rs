@@ -50,7 +50,7 @@ impl Watch for Moves {
 
     fn block(&self, state: u32, block: &Block<'_>, _hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
         let mut state = state;
-        if block.touches() && !block.same_instant {
+        if block.touches() {
             let before = if bit(block.before, self.net as usize) { Self::BEFORE } else { 0 };
             state = before | if block.rested { Self::JUDGED } else { 0 };
         }

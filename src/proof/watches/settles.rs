@@ -87,9 +87,9 @@ impl Watch for Late {
     fn block(&self, state: u32, block: &Block<'_>, hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
         if let (Some(step), true) = (block.step, block.touches()) {
             // of steps of one instant the first that is asked names the window
-            let named = block.same_instant && state & 3 != 0;
-            let state = if named { (state & !3) | Self::ASKED } else { self.begin(step as u32 + 1) };
-            return (state, [Fate::Begin; 2]);
+            let mut taken = (step as u32 + 1..).take(block.steps);
+            let asked = taken.find(|taken| self.begin(*taken) & Self::ASKED != 0);
+            return (self.begin(asked.unwrap_or(step as u32 + 1)), [Fate::Begin; 2]);
         }
         if block.late && state & 3 != 0 {
             return ((state & !3) | Self::ASKED, [Fate::Begin; 2]);
