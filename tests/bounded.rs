@@ -3,8 +3,10 @@
 use stillgate::circuit::NetId;
 use stillgate::control::Control;
 use stillgate::engine::Program;
+use stillgate::findings::Asked;
 use stillgate::proof::{
-    Budget, Ended, Explored, Mode, Moves, Nothing, Plant, Points, Settles, System, Watch, case, explore, one_draw,
+    Budget, Call, Ended, Explored, Mode, Moves, Nothing, Plant, Points, Settles, Spend, Subject, System, Watch, case,
+    explore, one_draw, prove,
 };
 use stillgate::reader;
 use stillgate::scenario::Scenario;
@@ -214,31 +216,50 @@ fn traces_become_cases_that_run() {
     }
 }
 
-#[test]
-fn demonstrations() {
-    let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("scenarios");
-    let mut names: Vec<_> = std::fs::read_dir(&folder).unwrap().map(|it| it.unwrap().path()).collect();
-    names.sort();
-    for path in names {
-        let text = std::fs::read_to_string(&path).unwrap();
-        let scenario = read(&text);
-        let program = Program::new(&scenario, &Control::default()).unwrap();
-        let asked = stillgate::findings::Asked::of(&scenario);
-        let started = std::time::Instant::now();
-        let proof = stillgate::proof::prove(&scenario, &program, &asked, &Default::default(), &Control::default());
-        println!("== {} zones {} {:?}", path.file_stem().unwrap().to_string_lossy(), proof.zones, started.elapsed());
-        for claim in &proof.claims {
-            let stillgate::proof::Subject::Question(q) = claim.subject else { continue };
-            let question = &asked.questions[q as usize];
-            println!(
-                "  {:12} {:?} {:?} net {:?} moment {:?} ties {} {:?}",
-                claim.call.word(), question.rule, question.name,
-                question.net.map(|net| scenario.circuit.name(net).to_string()),
-                question.moment.map(|m| scenario.stimulus.moments[m as usize].label.clone()), claim.but_for_ties, claim.reason
-            );
+/// What of a demonstration is proved, refuted and left open, by rule: counts of claims.
+fn claims(name: &str) -> std::collections::BTreeMap<(&'static str, &'static str), u32> {
+    let path = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("scenarios").join(name).with_extension("toml");
+    let scenario = read(&std::fs::read_to_string(path).unwrap());
+    let program = Program::new(&scenario, &Control::default()).unwrap();
+    let asked = Asked::of(&scenario);
+    let proof = prove(&scenario, &program, &asked, &Spend { zones: 20_000, ..Spend::default() }, &Control::default());
+    assert_eq!(proof.claims.len(), asked.questions.len());
+    let mut counts = std::collections::BTreeMap::new();
+    for claim in &proof.claims {
+        let Subject::Question(question) = claim.subject else { panic!("{claim:?}") };
+        let rule = asked.questions[question as usize].rule.word();
+        *counts.entry((rule, claim.call.word())).or_insert(0) += 1;
+        // a reason for what is open, a case for what is refuted
+        assert_eq!(claim.reason.is_some(), matches!(claim.call, Call::Undecided | Call::NotCovered), "{claim:?}");
+        assert_eq!(claim.witness.is_some(), claim.call == Call::Refuted, "{claim:?}");
+    }
+    // no draw does what was proved impossible, nor rests or settles elsewhere
+    let sampled = Scenario { plan: stillgate::scenario::Plan { samples: 300, ..scenario.plan }, ..scenario.clone() };
+    let sweep = stillgate::review::sweep(&sampled, &program, &asked, 1, &Control::default()).unwrap();
+    for claim in proof.claims.iter().filter(|claim| claim.call == Call::Proved) {
+        let Subject::Question(question) = claim.subject else { continue };
+        assert_eq!(sweep.rules[question as usize].broken, 0, "{name}: {claim:?} {:?}", asked.questions[question as usize]);
+    }
+    for window in &proof.windows {
+        let seen = &sweep.windows[window.moment as usize];
+        if let Some(states) = &window.states {
+            assert!(seen.outcomes.iter().all(|outcome| states.contains(&outcome.state)), "{name}: {seen:?}");
         }
-        for window in &proof.windows {
-            println!("  window {} states {:?} settling {:?} {} {}", scenario.stimulus.moments[window.moment as usize].label, window.states.as_ref().map(Vec::len), window.settling.map(|(a,b)| (a.fs() as f64/1e6, b.fs() as f64/1e6)), window.settling_below, window.settling_but_for_ties);
+        if let (Some((least, most)), Some(settling)) = (window.settling, &seen.settling) {
+            assert!(settling.min.is_none_or(|min| least <= min), "{name}: {window:?} {settling:?}");
+            assert!(window.settling_but_for_ties || settling.max_at_least || settling.max <= most, "{name}: {window:?}");
         }
     }
+    counts
+}
+
+/// The selector glitches and its cured twin does not; what each step expects holds for every delay.
+#[test]
+fn claims_of_the_selectors() {
+    let counts = claims("selector");
+    println!("{counts:?}");
+    assert!(counts[&("glitch_free", "refuted")] >= 1, "{counts:?}");
+    let counts = claims("selector-cured");
+    println!("{counts:?}");
+    assert!(counts.keys().all(|(_, call)| *call == "proved"), "{counts:?}");
 }
