@@ -6,7 +6,8 @@ use super::args::Sweeping;
 use super::common::{
     Failure, INTERRUPTED, called, code, control, finish, folder, load, options, page, program, say, with_draws, write,
 };
-use crate::output::{bundle, json, text};
+use crate::output::text::{self, Page};
+use crate::output::{bundle, json};
 use crate::review;
 
 pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
@@ -23,7 +24,9 @@ pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     if input.json {
         say(&json::review(&scenario, &review))?;
     } else if !input.quiet {
-        say(&text::review(&scenario, &review, &page(called(input).as_deref(), &options(&arguments.draws))))?;
+        let (called, options, folder) = (called(input), options(&arguments.draws), folder.to_string_lossy());
+        let page = Page { folder: &folder, ..page(called.as_deref(), &options) };
+        say(&text::review(&scenario, &review, &page))?;
     }
     let bundle = bundle::of_review(&scenario, &review);
     bundle::clear_pictures(&folder, &bundle);

@@ -9,7 +9,7 @@ use crate::circuit::NetId;
 use crate::findings::{Asked, Kind, Subject};
 use crate::output::flow_map::{self, Map};
 use crate::output::waves::{self, Nets, Picture};
-use crate::output::{charts, flow_tables, json, tables, words};
+use crate::output::{causes, charts, instance, flow_tables, json, tables, words};
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
 use crate::time::Time;
@@ -113,7 +113,8 @@ pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::Sweep
 }
 
 /// The files of a review: `result.json`, `waves-typical`, a `waves-<kind>-<net or pattern>-<step>` for each of the worst
-/// findings whose failing case was run (at most [`MOST_PICTURES`]), the files of the sweep and of the flow table.
+/// findings whose failing case was run (at most [`MOST_PICTURES`]), `causes.csv` and a `case-<kind>-<net or
+/// pattern>-<step>.toml` for each finding that was looked into, the files of the sweep and of the flow table.
 pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("result.json", json::review(scenario, review));
@@ -128,7 +129,7 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     shown.truncate(MOST_PICTURES);
     for (finding, run) in &shown {
         let subject = &review.sweep.findings[*finding].subject;
-        let stem = unique(stem(scenario, &review.asked, subject), &mut stems);
+        let stem = unique(causes::stem(scenario, &review.asked, subject, "waves"), &mut stems);
         let picture = Picture {
             nets: Nets::Telling,
             range: around(subject, run),
@@ -142,6 +143,20 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
         bundle
             .notes
             .push(format!("{some} of {all} have a picture; run --delays sample:N draws any other (see findings.csv)."));
+    }
+    if let Some(table) = causes::table(scenario, review) {
+        bundle.add("causes.csv", table);
+    }
+    for (file, why) in causes::case_files(scenario, review).into_iter().zip(&review.why) {
+        if let (Some(file), Some(needs)) = (file, why.as_ref().and_then(|why| why.needs.as_ref())) {
+            bundle.add(&file, instance::write_instance(&needs.case, scenario));
+        }
+    }
+    let broken = review.sweep.findings.iter().zip(&review.why).filter(|(finding, _)| finding.breaks_rule);
+    let left = broken.filter(|(_, why)| why.is_none()).count() as u64;
+    if left > 0 {
+        let left = words::many(left, "finding");
+        bundle.notes.push(format!("{left} that break a rule were not looked into for what they need; the worst were."));
     }
     let sweep = of_sweep(scenario, &review.asked, &review.sweep);
     bundle.files.extend(sweep.files);
@@ -175,16 +190,6 @@ fn around(subject: &Subject, run: &RunReport) -> Option<(Time, Time)> {
     Some((before, Time::from_fs(to.fs() + length / 12).min(run.trace.end.max(to))))
 }
 
-/// `waves-<kind>-<net or pattern>-<step>`, of letters, digits and dashes.
-fn stem(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
-    let named = words::subject(scenario, asked, subject);
-    let mut parts = vec!["waves".to_string(), safe(named.kind)];
-    parts.extend(named.net.map(safe).or_else(|| named.pattern.as_deref().map(safe)));
-    parts.extend(named.step.map(safe));
-    parts.retain(|part| !part.is_empty());
-    parts.join("-")
-}
-
 /// Letters, digits and single dashes; everything else becomes a dash.
 pub fn safe(text: &str) -> String {
     let mut name = String::new();
@@ -202,7 +207,7 @@ pub fn safe(text: &str) -> String {
 }
 
 /// The stem, or the stem with a number: no two are equal, also where upper and lower case are one.
-fn unique(stem: String, taken: &mut BTreeSet<String>) -> String {
+pub(super) fn unique(stem: String, taken: &mut BTreeSet<String>) -> String {
     let mut name = stem.clone();
     let mut number = 2;
     while !taken.insert(name.to_lowercase()) {
@@ -219,12 +224,12 @@ pub fn prepare(folder: &Path) -> Result<(), WriteError> {
     fs::create_dir_all(folder).map_err(|source| WriteError::Folder { folder: folder.to_path_buf(), source })
 }
 
-/// Takes pictures of findings out of a folder that an earlier review left there and this one does not have: they would be
+/// Takes pictures and cases of findings out of a folder that an earlier review left there and this one does not have: they would be
 /// taken for findings of this one.
 pub fn clear_pictures(folder: &Path, bundle: &Bundle) {
     let ours: BTreeSet<&str> = bundle.files.iter().map(|file| file.name.as_str()).collect();
     let of_a_finding = |name: &str| {
-        let kind = name.strip_prefix("waves-");
+        let kind = name.strip_prefix("waves-").or_else(|| name.strip_prefix("case-"));
         kind.is_some_and(|rest| Kind::ALL.iter().any(|kind| rest.starts_with(&format!("{}-", safe(kind.word())))))
     };
     for entry in fs::read_dir(folder).into_iter().flatten().flatten() {

@@ -6,6 +6,7 @@
 
 mod assumptions;
 pub mod bundle;
+mod causes;
 pub mod charts;
 pub mod flow_map;
 pub mod flow_tables;

@@ -21,7 +21,7 @@ fn or_empty(field: Option<impl ToString>) -> String {
 }
 
 /// A name that may be missing.
-fn name(field: Option<&str>) -> String {
+pub(super) fn name(field: Option<&str>) -> String {
     field.unwrap_or_default().to_string()
 }
 

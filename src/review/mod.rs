@@ -15,8 +15,8 @@ pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, comp
 pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
-pub use why::{Away, Needs, Pull, Why};
 pub use verdict::{grouped, verdict, with_typical};
+pub use why::{Away, Cut, Kept, LOOKED_INTO, Needs, Pull, Pulls, Ranks, Untold, Why, causes, mann_whitney};
 
 use crate::circuit::NetId;
 use crate::control::Control;
@@ -124,7 +124,7 @@ pub fn review(
         shown.push((index, run));
     }
     let verdict = with_typical(scenario, &sweep, &typical, verdict(scenario, &sweep));
-    let why = vec![None; sweep.findings.len()];
+    let why = causes(scenario, program, &asked, &sweep, threads, control)?;
     Ok(Review { asked, states, typical: Some(typical), sweep, shown, why, verdict })
 }
 

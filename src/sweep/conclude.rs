@@ -2,7 +2,8 @@
 
 use std::collections::{BTreeMap, BTreeSet};
 
-use super::report::{AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, WindowReport, Worst};
+use super::lowest::Lowest;
+use super::report::{AtMost, Boards, Finding, Fork, Outcome, RuleReport, Settling, SweepReport, WindowReport, Worst};
 use super::seen::Count;
 use super::spread::{self, Spread};
 use super::stats::{clopper_pearson, none_in};
@@ -67,6 +68,7 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
             breaks_rule,
             count: strays.count,
             first: strays.first,
+            lowest: Lowest::default(),
             worst: None,
             boards_failing: 0,
             worst_board: (0, 1),
@@ -92,6 +94,8 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
     for rule in &mut rules {
         rule.at_most = judging.rule_at_most(rule);
     }
+    let breakers = tally.facts.iter().filter(|(_, fact)| fact.breaks_rule);
+    let failing = breakers.map(|(subject, fact)| (*subject, fact.lowest.numbers().to_vec())).collect();
     let at_most = judging.at_most(&windows, &rules, &findings);
     let (unseen, unseen_untold) = judging.unseen();
     SweepReport {
@@ -103,6 +107,7 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
         at_most,
         unseen,
         unseen_untold,
+        failing,
         conditions: Vec::new(),
     }
 }
@@ -117,6 +122,7 @@ struct Race {
     /// Outcomes of races that break the rule, but for those with an alternative that they need not share.
     blamed: BTreeSet<State>,
     non_critical: Option<Strays>,
+    forks: Vec<Fork>,
 }
 
 /// Samples that did not do the commonest thing.
@@ -126,10 +132,16 @@ struct Strays {
     first: u64,
 }
 
+/// Which of several things is the commonest; of equally common ones that of the lower sample.
+fn commonest(counts: &[Count]) -> Option<usize> {
+    let each = counts.iter().enumerate();
+    each.min_by_key(|(_, c)| (std::cmp::Reverse(c.count), c.first)).map(|(i, _)| i)
+}
+
 impl Strays {
-    /// Of several things: all but the commonest; of equally common ones that of the lower sample is the commonest.
+    /// Of several things: all but the commonest.
     fn of(counts: &[Count]) -> Option<Strays> {
-        let commonest = counts.iter().enumerate().min_by_key(|(_, c)| (std::cmp::Reverse(c.count), c.first))?.0;
+        let commonest = commonest(counts)?;
         let others = counts.iter().enumerate().filter(|(i, _)| *i != commonest).map(|(_, c)| c);
         let first = others.clone().map(|c| c.first).min()?;
         Some(Strays { count: others.map(|c| c.count).sum(), first })
@@ -158,7 +170,7 @@ impl Race {
         let alternatives = expected(scenario, moment);
         let forbidden = scenario.rules.critical_race == Permission::Forbidden;
         let mut race = Race::default();
-        for outcomes in groups.values() {
+        for (before, outcomes) in &groups {
             let counts: Vec<Count> = outcomes.iter().map(|(_, count)| *count).collect();
             race.of += counts.iter().map(|c| c.count).sum::<u64>();
             if let [(passage, _)] = outcomes[..] {
@@ -168,6 +180,10 @@ impl Race {
                 continue;
             }
             Strays::join(&mut race.critical, Strays::of(&counts));
+            race.forks.extend(
+                commonest(&counts)
+                    .map(|it| Fork { before: (*before).clone(), commonest: outcomes[it].0.after.clone() }),
+            );
             let states: Vec<&State> = outcomes.iter().map(|(passage, _)| &passage.after).collect();
             if forbidden && !each_has_its_own(&states, &alternatives) {
                 race.breaks_rule = true;
@@ -255,6 +271,7 @@ fn window(scenario: &Scenario, asked: &Asked, moment: u32, tally: &WindowTally, 
         cut: tally.cut,
         began_before_rest: tally.began_before_rest,
         settling: settling(&tally.settling, &tally.cut_after),
+        forks: race.forks.clone(),
     }
 }
 

@@ -1,6 +1,7 @@
 //! Many runs: drawing, running, tallying, statistics. Texts say "Monte Carlo, N draws".
 
 mod conclude;
+mod lowest;
 mod report;
 mod run;
 mod seen;
@@ -11,9 +12,10 @@ mod unseen;
 
 pub use conclude::conclude;
 pub use report::{
-    AtMost, Boards, Cause, ConditionReport, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport,
+    AtMost, Boards, Cause, ConditionReport, Finding, Fork, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport,
     Worst,
 };
+pub use lowest::KEPT as FAILING;
 pub use run::run_samples;
 pub use stats::{clopper_pearson, none_in};
 pub use tally::{Passage, Tally};

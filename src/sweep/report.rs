@@ -1,5 +1,7 @@
 //! What a sweep says, in ids and exact times; names and texts are made where results are written.
 
+use std::collections::BTreeMap;
+
 use crate::engine::Hit;
 use crate::findings::{Against, Kind, Measure, Question, Reason, Subject};
 use crate::instance::Which;
@@ -30,6 +32,8 @@ pub struct SweepReport {
     pub unseen: Option<UnseenMass>,
     /// For how many windows that cannot be told because there were more orders than are kept.
     pub unseen_untold: u64,
+    /// For what breaks a rule, but for races, the lowest samples that show it, ascending, at most [`FAILING`](super::FAILING).
+    pub failing: BTreeMap<Subject, Vec<u64>>,
     /// The same draws under each condition of the scenario; empty within one.
     pub conditions: Vec<ConditionReport>,
 }
@@ -81,6 +85,17 @@ pub struct WindowReport {
     pub began_before_rest: u64,
     /// Settling time; `None` if no window settled or was cut.
     pub settling: Option<Settling>,
+    /// Every state of rest from which its step led to more than one state, with the commonest of them; in order.
+    pub forks: Vec<Fork>,
+}
+
+/// A state of rest from which one step led to several.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Fork {
+    /// The state before the step.
+    pub before: State,
+    /// The commonest of those after it; of equally common ones that of the lowest sample.
+    pub commonest: State,
 }
 
 /// One settled state of a window.

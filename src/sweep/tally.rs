@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
+use super::lowest::Lowest;
 use super::seen::{Count, Key, Seen, mix};
 use super::spread::Spread;
 use crate::engine::{End, Hit};
@@ -134,6 +135,8 @@ pub struct FactTally {
     pub count: u64,
     /// The lowest of them.
     pub first: u64,
+    /// The lowest of them, where it breaks a rule: those that are compared with samples that do not show it.
+    pub lowest: Lowest,
     /// The worst measure, and the lowest sample with it.
     pub worst: Option<(Measure, u64)>,
     /// Boards that ever show it; only complete boards, and only with several tries a board.
@@ -277,6 +280,7 @@ impl FactTally {
             breaks_rule,
             count: 0,
             first: u64::MAX,
+            lowest: Lowest::default(),
             worst: None,
             boards_failing: 0,
             worst_board,
@@ -302,6 +306,7 @@ impl FactTally {
     fn merge(&mut self, other: &FactTally) {
         self.count += other.count;
         self.first = self.first.min(other.first);
+        self.lowest.merge(&other.lowest);
         merge_worst(&mut self.worst, other.worst, |new, old| new > old);
         self.boards_failing += other.boards_failing;
         self.on_boards = (self.on_boards.0 + other.on_boards.0, self.on_boards.1 + other.on_boards.1);
@@ -414,6 +419,9 @@ impl Sink for Tally {
         let tally = self.facts.entry(fact.subject).or_insert_with(|| FactTally::new(fact.breaks_rule));
         tally.count += 1;
         tally.first = tally.first.min(self.sample);
+        if fact.breaks_rule {
+            tally.lowest.add(self.sample);
+        }
         merge_worst(&mut tally.worst, fact.measure.map(|measure| (measure, self.sample)), |new, old| new > old);
         if let Some(board) = self.board {
             *self.part_boards.entry(board).or_default().facts.entry(fact.subject).or_insert(0) += 1;

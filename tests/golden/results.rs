@@ -1,10 +1,14 @@
 //! Results of a sweep and a review, built by hand: every kind of value and gap occurs somewhere.
 
+use std::collections::BTreeMap;
+
 use stillgate::circuit::NetId;
 use stillgate::findings::{Asked, Kind, Reason, RuleKey, Shape, Subject};
-use stillgate::instance::Which;
+use stillgate::instance::{Instance, Quantities, Quantity, Which};
 use stillgate::logic::{Bits, State, Value};
-use stillgate::review::{Call, Review, StatesReport, Verdict};
+use stillgate::review::{
+    Away, Call, Cut, Kept, Needs, Pull, Pulls, Review, StatesReport, Untold, Verdict, Why,
+};
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{
     AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, UnseenMass, WindowReport, Worst,
@@ -64,6 +68,7 @@ pub fn window(moment: u32, outcomes: Vec<Outcome>, settling: Option<Settling>) -
         cut: 0,
         began_before_rest: 0,
         settling,
+        forks: Vec::new(),
     }
 }
 
@@ -160,6 +165,7 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
         at_most: None,
         unseen: Some(UnseenMass { moment: 3, once: 120, of: 10_000, estimate: 0.012, upper: 0.112 }),
         unseen_untold: 0,
+        failing: BTreeMap::new(),
         conditions: Vec::new(),
     }
 }
@@ -203,7 +209,7 @@ pub fn review(scenario: &Scenario) -> Review {
             (1, cases::run(scenario, Which::Sample(17))),
             (3, cases::run(scenario, Which::Sample(8123))),
         ],
-        why: vec![None; sweep.findings.len()],
+        why: causes(scenario, sweep.findings.len()),
         sweep,
         asked,
         verdict: Verdict {
@@ -217,6 +223,43 @@ pub fn review(scenario: &Scenario) -> Review {
     }
 }
 
+/// Why the first findings of [`review`] could happen: one needs two delays, one is cut short, of the others nothing is told.
+fn causes(scenario: &Scenario, findings: usize) -> Vec<Option<Why>> {
+    let quantities: Vec<Quantity> = Quantities::of(scenario).iter().copied().collect();
+    let away = |number: usize, value: Span| Away {
+        quantity: quantities[number],
+        typical: quantities[number].range.typ,
+        value,
+    };
+    let least = away(0, quantities[0].range.min);
+    let far = away(1, Span::from_fs(quantities[1].range.max.fs() - 1_234));
+    let needs = Needs {
+        away: vec![far, least],
+        minimal: true,
+        kept: Kept::default(),
+        case: Box::new(Instance::of(scenario, &Which::Typ)),
+        runs: 123,
+        cut: None,
+    };
+    let pull = |number: usize, strength| Pull { quantity: quantities[number], strength, failing: 9, passing: 1_024 };
+    let told = vec![pull(1, 0.871_234_5), pull(2, -0.25)];
+    let both = Why {
+        race: None,
+        needs: Some(needs.clone()),
+        pull: Pulls { told, more: 3, samples: (9, 1_024), untold: None },
+    };
+    let kept = Kept { start: true, bounces: false, exact: false };
+    let away = vec![least];
+    let cut = Why {
+        race: None,
+        needs: Some(Needs { away, minimal: false, kept, cut: Some(Cut::Runs(2_000)), runs: 2_000, ..needs }),
+        pull: Pulls { untold: Some(Untold::FewFail), ..Pulls::default() },
+    };
+    let mut all = vec![None; findings];
+    (all[0], all[1]) = (Some(both), Some(cut));
+    all
+}
+
 /// A sweep that was broken off before its first draw.
 pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
     SweepReport {
@@ -228,6 +271,7 @@ pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
         at_most: None,
         unseen: None,
         unseen_untold: 0,
+        failing: BTreeMap::new(),
         conditions: Vec::new(),
     }
 }

@@ -12,6 +12,7 @@ mod review;
 mod run;
 mod states;
 mod sweep;
+mod why;
 
 pub use check::check;
 pub use review::review;

@@ -2,10 +2,12 @@
 
 use serde::Serialize;
 
-use super::parts::{Departed, Exact, Level, Measured, Object, OneLine, state};
+use super::parts::{Departed, Exact, Level, Lines, Measured, Object, OneLine, state};
+use super::why;
 use crate::findings::Asked;
+use crate::output::causes;
 use crate::output::words::{self, six};
-use crate::review::{Verdict, by_condition};
+use crate::review::{Review, Verdict, by_condition};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, Settling, SweepReport, WindowReport};
 
@@ -102,6 +104,12 @@ struct Found<'a> {
     worst_sample: Option<u64>,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    needs: Option<why::Needs>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pull: Option<Lines<why::Decisive>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pull_remark: Option<String>,
 }
 
 #[derive(Serialize)]
@@ -192,6 +200,20 @@ impl<'a> Sweep<'a> {
     }
 }
 
+impl Sweep<'_> {
+    /// Adds why findings happen, where that was looked into.
+    pub fn explain(mut self, scenario: &Scenario, review: &Review) -> Self {
+        let files = causes::case_files(scenario, review);
+        for ((found, why), file) in self.findings.iter_mut().zip(&review.why).zip(files) {
+            let Some(why) = why else { continue };
+            found.needs = why::needs(scenario, why, file);
+            found.pull = Some(why::pull(scenario, why));
+            found.pull_remark = causes::pull_remark(why);
+        }
+        self
+    }
+}
+
 fn window<'a>(scenario: &'a Scenario, report: &WindowReport) -> Window<'a> {
     let outcomes = report.outcomes.iter().map(|it| Outcome {
         state: state(&scenario.circuit, &it.state),
@@ -276,6 +298,9 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         sample: finding.sample,
         worst_sample: finding.worst_sample,
         reference: finding.against.as_ref().map(|it| Departed::of(scenario, it)),
+        needs: None,
+        pull: None,
+        pull_remark: None,
     }
 }
 

@@ -2,6 +2,7 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
+use super::why::Causes;
 use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
 use crate::output::words;
 use crate::review::departure_words;
@@ -158,8 +159,15 @@ impl Group<'_> {
     }
 }
 
-/// Findings that break a rule in full, then those that break none.
-pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, asked: &Asked, report: &SweepReport) {
+/// Findings that break a rule in full, with their causes if they are known, then those that break none.
+pub(super) fn findings(
+    paper: &mut Paper,
+    page: &Page<'_>,
+    scenario: &Scenario,
+    asked: &Asked,
+    report: &SweepReport,
+    causes: Option<&Causes<'_>>,
+) {
     let (broken, listed) = (groups(asked, report, true), groups(asked, report, false));
     if !broken.is_empty() {
         paper.heading("Findings that break a rule, worst first");
@@ -173,6 +181,9 @@ pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, 
             }
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
                 paper.whole(4, &page.replay(sample, None));
+            }
+            if let Some(causes) = causes {
+                causes.say(paper, page, scenario, finding);
             }
         }
         super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");
