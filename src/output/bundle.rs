@@ -9,7 +9,7 @@ use crate::circuit::NetId;
 use crate::findings::{Asked, Kind, Subject};
 use crate::output::flow_map::{self, Map};
 use crate::output::waves::{self, Nets, Picture};
-use crate::output::{causes, charts, instance, flow_tables, json, tables, words};
+use crate::output::{causes, charts, flow_tables, instance, json, tables, words};
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
 use crate::time::Time;

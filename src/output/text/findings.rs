@@ -2,7 +2,7 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use super::why::Causes;
+use super::why::{Causes, Told};
 use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
 use crate::output::words;
 use crate::review::departure_words;
@@ -166,7 +166,7 @@ pub(super) fn findings(
     scenario: &Scenario,
     asked: &Asked,
     report: &SweepReport,
-    causes: Option<&Causes<'_>>,
+    mut causes: Option<&mut Causes<'_>>,
 ) {
     let (broken, listed) = (groups(asked, report, true), groups(asked, report, false));
     if !broken.is_empty() {
@@ -174,7 +174,9 @@ pub(super) fn findings(
         for (i, group) in broken.iter().take(FULL).enumerate() {
             let finding = group.worst;
             paper.hang(2, 4, Tone::Bad, &format!("{} {}", i + 1, group.about(scenario, asked)));
-            paper.say(4, Tone::Plain, &group.figures());
+            let cause = causes.as_mut().map(|causes| causes.next(page, scenario, finding));
+            let beside = cause.as_ref().map_or_else(String::new, Told::beside);
+            paper.say(4, Tone::Plain, &(group.figures() + &beside));
             if let Some(against) = &finding.against {
                 let first = if finding.count > 1 { "the first: " } else { "" };
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
@@ -182,8 +184,8 @@ pub(super) fn findings(
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
                 paper.whole(4, &page.replay(sample, None));
             }
-            if let Some(causes) = causes {
-                causes.say(paper, page, scenario, finding);
+            if let Some(cause) = cause {
+                cause.say(paper);
             }
         }
         super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");

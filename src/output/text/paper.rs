@@ -165,7 +165,7 @@ impl Paper {
 fn words(text: &str) -> Vec<String> {
     let mut words: Vec<String> = Vec::new();
     for word in text.split_whitespace() {
-        let bare = word.trim_end_matches([',', '.', ';', ')', ':']);
+        let bare = word.trim_end_matches([',', '.', ';', ')', ']', ':']);
         let is_unit = bare == "%" || Unit::ALL.iter().any(|unit| unit.name() == bare);
         match words.last_mut() {
             Some(last) if is_unit && last.ends_with(|letter: char| letter.is_ascii_digit()) => {

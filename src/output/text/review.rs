@@ -16,8 +16,8 @@ const REASONS: usize = 5;
 pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     verdict(&mut paper, &review.verdict);
-    let causes = Causes::of(scenario, review);
-    body(&mut paper, page, scenario, &review.asked, &review.sweep, Some(&causes));
+    let mut causes = Causes::of(scenario, review);
+    body(&mut paper, page, scenario, &review.asked, &review.sweep, Some(&mut causes));
     flow::short(&mut paper, scenario, &review.states.flow);
     notes::notes(&mut paper, scenario);
     paper.finish()
@@ -54,7 +54,7 @@ pub(super) fn body(
     scenario: &Scenario,
     asked: &crate::findings::Asked,
     report: &SweepReport,
-    causes: Option<&Causes<'_>>,
+    causes: Option<&mut Causes<'_>>,
 ) {
     paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
     if report.samples < report.plan.samples {

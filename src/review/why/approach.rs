@@ -4,7 +4,7 @@ use super::probe::Cut;
 use super::reduce::{Search, Set};
 use crate::time::Span;
 
-/// Steps of the way from typical to the failing case that all values take together.
+/// Steps of the way from typical outward that all values take together.
 const STEPS: u64 = 1 << 20;
 
 /// The value this many steps of the way from one to another.
@@ -17,9 +17,12 @@ fn between(from: Span, to: Span, steps: u64) -> Span {
 }
 
 impl Search<'_> {
-    /// First all values by one share of their way, so that none stays far out for another's sake; then each alone, to 1 fs.
+    /// First all values by one share of their way from typical to the ends of their ranges (or to the failing case), so that none stays far out for another's sake; then each alone, to 1 fs.
     /// In the end no value can be put back, and none can be moved 1 fs nearer (in its range) with the others as they are.
     pub(super) fn approach(&mut self, set: Set) -> Result<Set, Cut> {
+        // shares of ways to the ends of the ranges are fair; those of ways to where a draw happened to be are not
+        let stretched = self.stretched(&set);
+        let set = if self.shows(&stretched)? { stretched } else { set };
         let part = |search: &Search<'_>, steps: u64| {
             let each = set.iter().map(|(number, value)| (*number, between(search.nearest(*number), *value, steps)));
             search.proper(each)

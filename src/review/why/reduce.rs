@@ -295,6 +295,11 @@ impl<'a> Search<'a> {
         }
     }
 
+    /// The same members, each at the end of its range.
+    pub(super) fn stretched(&self, set: &Set) -> Set {
+        set.iter().map(|(number, _)| (*number, self.varied(*number).end)).collect()
+    }
+
     /// The value of the range nearest to typical.
     pub(super) fn nearest(&self, number: u32) -> Span {
         self.varied(number).nearest
