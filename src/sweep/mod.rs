@@ -10,12 +10,12 @@ mod stats;
 mod tally;
 mod unseen;
 
-pub use conclude::conclude;
-pub use report::{
-    AtMost, Boards, Cause, ConditionReport, Finding, Fork, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport,
-    Worst,
-};
+pub use conclude::{conclude, race_breaks, worst_first};
 pub use lowest::KEPT as FAILING;
+pub use report::{
+    AtMost, Boards, Cause, ConditionReport, Finding, Fork, Outcome, RuleReport, Settling, SweepReport, Tie, TiesSought,
+    Unmoved, WindowReport, Worst,
+};
 pub use run::run_samples;
 pub use stats::{clopper_pearson, none_in};
 pub use tally::{Passage, Tally};

@@ -11,7 +11,8 @@ use stillgate::review::{
 };
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{
-    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, UnseenMass, WindowReport, Worst,
+    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass, WindowReport,
+    Worst,
 };
 use stillgate::time::Span;
 
@@ -138,6 +139,7 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
     let mut appears = finding(Kind::Oscillation, None, 3, 0);
     (appears.share, appears.interval, appears.sample, appears.worst_sample) = (None, None, None, None);
     appears.tie = Some(Tie::Appears);
+    appears.case = Some(Box::new(Which::Perturbed(Box::new(Which::Typ), 3)));
     let mut late = finding(Kind::SettleWithin, Some(upper), 0, 1);
     late.subject.question = asked.find(RuleKey::SettleWithin, 0, Some(upper), Some(0));
     late.worst = Some(Worst::Time(ns("21.9")));
@@ -167,6 +169,7 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
         unseen_untold: 0,
         failing: BTreeMap::new(),
         conditions: Vec::new(),
+        ties: TiesSought { done: true, ..TiesSought::default() },
     }
 }
 
@@ -273,5 +276,6 @@ pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
         unseen_untold: 0,
         failing: BTreeMap::new(),
         conditions: Vec::new(),
+        ties: TiesSought::default(),
     }
 }

@@ -3,7 +3,7 @@
 use super::Page;
 use super::paper::{Paper, Tone};
 use super::why::Causes;
-use super::{conditions, findings, flow, notes, rules, steps, sure};
+use super::{conditions, findings, flow, notes, rules, steps, sure, ties};
 use crate::output::words;
 use crate::review::{Call, Review, Verdict};
 use crate::scenario::Scenario;
@@ -66,6 +66,7 @@ pub(super) fn body(
     conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
     sure::sure(paper, report);
+    ties::ties(paper, report);
     rules::not_judged(paper, scenario, report);
     rules::margins(paper, scenario, report);
 }

@@ -32,8 +32,8 @@ pub const LOOKED_INTO: usize = 24;
 pub struct Why {
     /// The two paths that race; `None` where the finding has no such pair.
     pub race: Option<RacePair>,
-    /// The least that must leave typical for it to happen; `None` where its failing case cannot be put together from what
-    /// is drawn, or it was interrupted.
+    /// The least that must leave typical for it to happen; `None` where no case shows it by itself (a race that no draw
+    /// made), its case cannot be put together from what is drawn, or it was interrupted.
     pub needs: Option<Needs>,
     /// Which quantities decide.
     pub pull: Pulls,

@@ -78,7 +78,8 @@ impl Away {
     }
 }
 
-/// What a finding needs; `None`: its case cannot be put together from what is drawn, or it was interrupted at once.
+/// What a finding needs; `None`: its case does not show it by itself, cannot be put together from what is drawn, or it was
+/// interrupted at once.
 pub(super) fn of(
     scenario: &Scenario,
     program: &Program,
@@ -88,7 +89,7 @@ pub(super) fn of(
     control: &Control,
 ) -> Result<Option<Needs>, ReviewError> {
     let sample = finding.worst_sample.or(finding.sample);
-    let Some(which) = sample.map(Which::Sample).or_else(|| finding.case.as_deref().cloned()) else { return Ok(None) };
+    let Some(which) = finding.shown_by() else { return Ok(None) };
     let failing = Instance::of(scenario, &which);
     let typical = Instance::of(scenario, &Which::Typ);
     let quantities: Vec<Quantity> = Quantities::of(scenario).iter().copied().collect();
