@@ -71,7 +71,7 @@ impl Strata {
 }
 
 /// The output function of splitmix64 (Steele, Lea, Flood 2014; from memory).
-fn mix(word: u64) -> u64 {
+pub(super) fn mix(word: u64) -> u64 {
     let mut z = word.wrapping_add(0x9E37_79B9_7F4A_7C15);
     z = (z ^ (z >> 30)).wrapping_mul(0xBF58_476D_1CE4_E5B9);
     z = (z ^ (z >> 27)).wrapping_mul(0x94D0_49BB_1331_11EB);
