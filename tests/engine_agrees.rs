@@ -269,9 +269,9 @@ fn firings_that_differ() {
     let met = agree(900, Kind { begin: Start::Unknown, wires: 0.2, ..kind });
     assert!(met.settled > 100 && met.unknown_left > 20, "{met:?}");
     let kind = Kind { begin: Start::Random, gates: (2, 4), limits: &[150, 5000, 20_000], rings: true, ..kind };
-    let met = agree(300, kind);
+    let met = agree(200, kind);
     assert!(met.exact > 10 && met.inexact > 30, "{met:?}");
-    let met = agree(300, Kind { filters: Filters::All, wires: 0.2, delays: Lengths::Short, ..kind });
+    let met = agree(200, Kind { filters: Filters::All, wires: 0.2, delays: Lengths::Short, ..kind });
     assert!(met.exact > 10 && met.inexact > 30, "{met:?}");
     let met = agree(12, Kind { gates: (100, 160), limits: &[2000], rings: false, ..kind });
     assert!(met.settled + met.transitions + met.inexact > 5, "{met:?}");
