@@ -326,7 +326,8 @@ fn a_board_keeps_what_a_group_has_in_common() {
     let all: Vec<[Vec<u64>; 2]> = (0..boards).map(|number| seen(&scenario, number)).collect();
     let expected = 6.0 / std::f64::consts::PI * (rho / 2.0).asin();
     let bound = Z / ((boards - 1) as f64).sqrt();
-    for (what, one, two) in [("two firings", (0, 0), (0, 7)), ("two gates", (0, 3), (1, 3)), ("both", (0, 4), (1, 31))] {
+    for (what, one, two) in [("two firings", (0, 0), (0, 7)), ("two gates", (0, 3), (1, 3)), ("both", (0, 4), (1, 31))]
+    {
         let of = |at: (usize, usize), it: &[Vec<u64>; 2]| it[at.0][at.1];
         let rank = spearman(&all.iter().map(|it| (of(one, it), of(two, it))).collect::<Vec<_>>());
         assert!((rank - expected).abs() < bound, "{what}: {rank}, not {expected}");
@@ -467,7 +468,9 @@ fn what_the_firings_of_a_case_lack_or_have_too_much_is_reported() {
     };
     let (r, s, t) = (line("r"), line("s"), line("t"));
     let key = s.split_once("key = ").unwrap().1.split_once(',').unwrap().0.to_string();
-    let given = |text: &str| format!("{}[firings.given.r]\n{text}\n{}", &drawn[..firings], &drawn[drawn.find("\n[[wires]]").unwrap()..]);
+    let given = |text: &str| {
+        format!("{}[firings.given.r]\n{text}\n{}", &drawn[..firings], &drawn[drawn.find("\n[[wires]]").unwrap()..])
+    };
     let swap = |old: &str, new: &str| {
         assert!(drawn[firings..].contains(old), "{old}");
         format!("{}{}", &drawn[..firings], drawn[firings..].replacen(old, new, 1))
@@ -522,7 +525,8 @@ fn a_case_may_give_single_firings_their_delays() {
     let scenario = world.scenario();
     let mut instance = world.instance(&scenario);
     instance.firings = Some(Firings::Given([((GateId(0), 2), [fs(999), fs(400)])].into()));
-    let record = run(&scenario, &Program::new(&scenario, &Control::default()).unwrap().start().unwrap().ones, &instance);
+    let record =
+        run(&scenario, &Program::new(&scenario, &Control::default()).unwrap().start().unwrap().ones, &instance);
     let times: Vec<u64> = record.of(world.net("q")).iter().map(|change| change.0).collect();
     assert_eq!(times, [1110, 2110, 3410, 4110, 5110]);
 }
@@ -603,6 +607,26 @@ fn texts_and_json_say_how_delays_vary() {
         let document: serde_json::Value = serde_json::from_str(&json::run(&scenario, &asked, &one)).unwrap();
         assert_eq!(document["firings"], if anew { "drawn".into() } else { serde_json::Value::Null });
     }
+}
+
+/// Under a condition each firing is the same, slower or faster, to the rounding of ranges.
+#[test]
+fn a_condition_scales_every_firing() {
+    let mut scenario = followers(Marginal::Triangular, 200);
+    let mut slow = scenario.clone();
+    slow.delays = Arc::new(scenario.delays.scaled(Billionths(1_500_000_000)).unwrap());
+    for number in [0, 5] {
+        let (one, other) = (sample(&scenario, number), sample(&slow, number));
+        for gate in ["p", "q"] {
+            for (fast, slow) in delays(&scenario, &one, gate).iter().zip(delays(&slow, &other, gate)) {
+                assert!((3 * fast).abs_diff(2 * slow) <= 4, "{gate}: {fast} and {slow}");
+            }
+        }
+    }
+    // and another seed is another run
+    let one = sample(&scenario, 5);
+    scenario.plan.seed += 1;
+    assert_ne!(one, sample(&scenario, 5));
 }
 
 /// As a user replays it: the number of a sample and the file of its case give one run.

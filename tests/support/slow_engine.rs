@@ -432,9 +432,7 @@ impl Slow<'_> {
         let node = gate.index();
         let asks = match self.scenario.delays.filter[node] {
             // where the function is the output's value, or is pending already, nothing is scheduled
-            Filter::Inertial => {
-                f != v && !self.pending.iter().any(|event| event.node == node && event.value == f)
-            }
+            Filter::Inertial => f != v && !self.pending.iter().any(|event| event.node == node && event.value == f),
             // every change of the function
             _ => self.pending.iter().rfind(|event| event.node == node).map_or(v, |event| event.value) != f,
         };
@@ -537,7 +535,11 @@ impl Slow<'_> {
         match &self.instance.firings {
             None => 0,
             Some(Firings::Drawn(drawn)) => {
-                if drawn.gates[gate].ranges.iter().any(|range| range.min < range.max) { *scheduled } else { 0 }
+                if drawn.gates[gate].ranges.iter().any(|range| range.min < range.max) {
+                    *scheduled
+                } else {
+                    0
+                }
             }
             Some(Firings::Given(given)) => {
                 let numbers = given.keys().filter(|which| which.0.index() == gate).map(|which| which.1);

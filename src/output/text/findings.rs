@@ -81,7 +81,9 @@ fn figures(scenario: &Scenario, finding: &Finding) -> String {
         text += &format!(", in {mean} of their tries, the worst in {worst}");
         text += match boards.cause() {
             Cause::Parts => ": it lies in their parts",
-            Cause::Moment if scenario.plan.vary == Vary::PerEvent => ": it lies in the moment of the step or in the firings",
+            Cause::Moment if scenario.plan.vary == Vary::PerEvent => {
+                ": it lies in the moment of the step or in the firings"
+            }
             Cause::Moment => ": it lies in the moment of the step",
             Cause::Mixed => "",
         };

@@ -64,7 +64,9 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
     paper.gap();
     match &report.instance.firings {
         None => {}
-        Some(Firings::Drawn(_)) => paper.say(0, Tone::Plain, "Every firing of a gate has a delay of its own, drawn anew."),
+        Some(Firings::Drawn(_)) => {
+            paper.say(0, Tone::Plain, "Every firing of a gate has a delay of its own, drawn anew.")
+        }
         Some(Firings::Given(given)) => {
             let many = words::many(given.len() as u64, "firing");
             paper.say(0, Tone::Plain, &format!("{many} of this case may have delays of their own."));
