@@ -535,11 +535,8 @@ impl Slow<'_> {
         match &self.instance.firings {
             None => 0,
             Some(Firings::Drawn(drawn)) => {
-                if drawn.gates[gate].ranges.iter().any(|range| range.min < range.max) {
-                    *scheduled
-                } else {
-                    0
-                }
+                let differ = drawn.gates[gate].ranges.iter().any(|range| range.min < range.max);
+                *scheduled * u64::from(differ)
             }
             Some(Firings::Given(given)) => {
                 let numbers = given.keys().filter(|which| which.0.index() == gate).map(|which| which.1);
