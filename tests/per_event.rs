@@ -487,6 +487,7 @@ fn what_the_firings_of_a_case_lack_or_have_too_much_is_reported() {
         (swap(&s, &s.replace("one_draw", "onedraw")), "unknown key `onedraw` in gate `s`"),
         (swap(&s, &s.replace(" }", ", common = 5 }")), "gate `s` is in no group"),
         (swap(&r, &r.replace("tracking = 0.123456789", "tracking = 1.1")), "`tracking` of gate `r` is above 1"),
+        (swap(&s, &s.replace(" }", ", moved = { rise = -0.001 } }")), "`moved` of gate `s` is not a rise and a fall"),
         (swap(&r, &r.replace("common", "mismatch = 0.1, common")), "does not say how it belongs to its group"),
         (swap(&r, &format!("{} }}", r.split(", common").next().unwrap())), "gate `r` lacks `common`"),
         (swap(&t, &t.replace("[0.75, 1.5]", "[1.75, 1.5]")), "the group of gate `t` is not possible"),
@@ -627,6 +628,38 @@ fn a_condition_scales_every_firing() {
     let one = sample(&scenario, 5);
     scenario.plan.seed += 1;
     assert_ne!(one, sample(&scenario, 5));
+}
+
+/// A perturbation moves all firings of a gate and edge together, by what it moves the gate's delay, and a file keeps it.
+#[test]
+fn a_perturbation_moves_every_firing() {
+    let text = EVERY_KIND.replace("time_unit = \"ps\"", "time_unit = \"ns\"");
+    let scenario = reader::read(&text, "case.toml").unwrap_or_else(|faults| panic!("{faults}")).scenario;
+    let drawn = Instance::of(&scenario, &Which::Sample(8));
+    let list = [((GateId(3), 0), [fs(60_000_001), fs(70_000_002)])];
+    let given = Instance { firings: Some(Firings::Given(list.into())), ..drawn.clone() };
+    for case in [&drawn, &given] {
+        for number in 1..=8 {
+            let moved = case.perturbed(&scenario, number).unwrap().instance;
+            for gate in scenario.circuit.gates() {
+                let (old, new) = (case.delays.gate[gate.index()], moved.delays.gate[gate.index()]);
+                let by = [0, 1].map(|edge| new[edge].fs() as i64 - old[edge].fs() as i64);
+                assert!(by.iter().all(|by| *by != 0));
+                for firing in 0..30 {
+                    let of = |it: &Instance, plain| it.firings.as_ref().unwrap().delays(gate, firing, plain);
+                    let (old, new) = (of(case, old), of(&moved, new));
+                    assert_eq!([0, 1].map(|edge| new[edge].fs() as i64 - old[edge].fs() as i64), by, "{firing}");
+                }
+            }
+            let written = write_instance(&moved, &scenario);
+            let read = read_instance(&written, "case", &scenario).unwrap_or_else(|faults| panic!("{faults}{written}"));
+            assert_eq!(read, moved, "{written}");
+        }
+    }
+    // the least that may be drawn bounds it, not what the case has at typical: a hundredth of 60 fs is none
+    let short = text.replace("delay = [50, 60, 95]", "delay = [\"60 fs\", 60, 95]");
+    let short = reader::read(&short, "case.toml").unwrap_or_else(|faults| panic!("{faults}")).scenario;
+    assert!(Instance::of(&short, &Which::Sample(8)).perturbed(&short, 1).is_err());
 }
 
 /// As a user replays it: the number of a sample and the file of its case give one run.

@@ -7,6 +7,7 @@
 
 use std::collections::BTreeMap;
 
+use super::perturb::shifted;
 use super::strata::mix;
 use crate::circuit::GateId;
 use crate::delay::{DelayRange, Marginal, Together};
@@ -41,6 +42,8 @@ pub struct Anew {
     pub one_draw: bool,
     /// How it belongs to its group, and the number that the group has on this board.
     pub group: Option<(Together, u64)>,
+    /// By how many femtoseconds every delay of `[fall, rise]` is moved after it was drawn; it stays from 1 fs to below 2^62 fs.
+    pub moved: [i64; 2],
 }
 
 impl Anew {
@@ -66,7 +69,16 @@ impl Anew {
             let own = self.number(edge, firing);
             self.group.map_or_else(|| draw.quantile(range, own), |(how, common)| how.draw(draw, range, own, common))
         };
-        [delay(0), delay(1)]
+        self.move_by([delay(0), delay(1)])
+    }
+
+    /// The least `[fall, rise]` of any firing.
+    pub fn least(&self) -> [Span; 2] {
+        self.move_by(self.ranges.map(|range| range.min))
+    }
+
+    fn move_by(&self, [fall, rise]: [Span; 2]) -> [Span; 2] {
+        [shifted(fall, self.moved[0]), shifted(rise, self.moved[1])]
     }
 }
 
@@ -90,6 +102,34 @@ impl Firings {
         }
     }
 
+    /// The least `[fall, rise]` of a gate's firings that do not take its delays in the case; `None` if all do.
+    pub fn least(&self, gate: GateId) -> Option<[Span; 2]> {
+        match self {
+            Firings::Drawn(drawn) => Some(drawn.gates[gate.index()].least()),
+            Firings::Given(given) => {
+                let all = given.range((gate, 0)..=(gate, u64::MAX)).map(|(_, edges)| *edges);
+                all.reduce(|a, b| [a[0].min(b[0]), a[1].min(b[1])])
+            }
+        }
+    }
+
+    /// Moves every firing of each gate by so many femtoseconds of `[fall, rise]`.
+    pub(super) fn move_all(&mut self, by: &[[i64; 2]]) {
+        match self {
+            Firings::Drawn(drawn) => {
+                for (gate, by) in drawn.gates.iter_mut().zip(by) {
+                    gate.moved = [0, 1].map(|edge| gate.moved[edge].saturating_add(by[edge]));
+                }
+            }
+            Firings::Given(given) => {
+                for ((gate, _), edges) in given {
+                    let by = by[gate.index()];
+                    *edges = [shifted(edges[0], by[0]), shifted(edges[1], by[1])];
+                }
+            }
+        }
+    }
+
     /// From which firing of a gate on they all take the same delays: 0 where no firing differs, the greatest number where
     /// they never cease to.
     pub fn until(&self, gate: GateId) -> u64 {
@@ -110,7 +150,7 @@ mod tests {
 
     fn anew(key: u64, one_draw: bool) -> Anew {
         let range = |min, max| DelayRange::between(Span::from_fs(min), Span::from_fs(max));
-        Anew { key, ranges: [range(0, u64::MAX >> 2), range(0, u64::MAX >> 2)], one_draw, group: None }
+        Anew { key, ranges: [range(0, u64::MAX >> 2), range(0, u64::MAX >> 2)], one_draw, group: None, moved: [0; 2] }
     }
 
     /// The first numbers of SplitMix64 from seed 1234567, as they are found in many places (from memory).
@@ -139,6 +179,22 @@ mod tests {
             assert_ne!(two.delays(Marginal::Uniform, firing)[1], rise, "{firing}");
         }
         assert_ne!(one.delays(Marginal::Uniform, 5), one.delays(Marginal::Uniform, 6));
+    }
+
+    #[test]
+    fn firings_move_by_whole_femtoseconds_and_stay_delays() {
+        let gates = vec![anew(3, false), Anew { ranges: [DelayRange::exact(Span::from_fs(5)); 2], ..anew(3, true) }];
+        let before = Firings::Drawn(Drawn { draw: Marginal::Normal, gates });
+        let mut after = before.clone();
+        after.move_all(&[[7, -9], [-5, 2]]);
+        for firing in 0..50 {
+            let [old, new] = [&before, &after].map(|it| it.delays(GateId(0), firing, [Span::TICK; 2]).map(Span::fs));
+            assert_eq!([old[0] + 7, old[1] - 9], new);
+            assert_eq!(after.delays(GateId(1), firing, [Span::TICK; 2]).map(Span::fs), [1, 7]);
+        }
+        let mut given = Firings::Given([((GateId(1), 4), [Span::TICK; 2])].into());
+        given.move_all(&[[0, 0], [3, -3]]);
+        assert_eq!(given.delays(GateId(1), 4, [Span::TICK; 2]).map(Span::fs), [4, 1]);
     }
 
     #[test]

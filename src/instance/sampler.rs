@@ -214,6 +214,7 @@ fn firings(scenario: &Scenario) -> (Drawn, Vec<Option<u32>>) {
         ranges: delays.gate[g],
         one_draw: delays.gate_one_draw[g],
         group: group_of[g].map(|group| (delays.groups[group as usize].how, 0)),
+        moved: [0; 2],
     };
     let gates = (0..delays.gate.len()).map(gate).collect();
     (Drawn { draw: scenario.plan.draw, gates }, group_of)

@@ -372,6 +372,9 @@ pub fn cases(count: u64, kind: Kind) -> impl Iterator<Item = Case> {
         if kind.anew && rng.random_bool(0.3) {
             instance.firings = Some(given(&scenario, &mut rng, kind.delays));
         }
+        if let Some(Firings::Drawn(drawn)) = &mut instance.firings {
+            drawn.gates.iter_mut().for_each(|gate| gate.moved = [0, 1].map(|_| rng.random_range(0..=1)));
+        }
         Some(Case { name: format!("{kind:?} case {number}"), world, scenario, rest, instance })
     })
 }

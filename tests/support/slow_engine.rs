@@ -516,14 +516,15 @@ impl Slow<'_> {
                 [0, 1].map(|edge| {
                     let random = split_mix(gate.key, 2 * number + if gate.one_draw { 0 } else { edge });
                     let range = gate.ranges[edge as usize];
-                    match gate.group {
+                    let span = match gate.group {
                         Some((how, common)) => how.draw(drawn.draw, range, random, common),
                         None if drawn.draw == Marginal::Uniform => {
                             let (min, width) = (range.min.fs(), range.max.fs() - range.min.fs() + 1);
                             Span::from_fs(min + ((u128::from(random) * u128::from(width)) >> 64) as u64)
                         }
                         None => drawn.draw.quantile(range, random),
-                    }
+                    };
+                    Span::from_fs((span.fs() as i64 + gate.moved[edge as usize]).clamp(1, (1 << 62) - 1) as u64)
                 })
             }
         }

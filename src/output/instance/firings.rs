@@ -7,6 +7,7 @@ use crate::circuit::GateId;
 use crate::delay::{DelayRange, Together};
 use crate::instance::{Anew, Firings};
 use crate::scenario::Scenario;
+use crate::time::Decimal;
 
 /// The section of a case's firings.
 pub(super) fn firings(firings: &Firings, scenario: &Scenario) -> String {
@@ -59,6 +60,10 @@ fn of_gate(anew: &Anew, scenario: &Scenario) -> String {
             }
         };
         text += &format!(", common = {common:#018x}");
+    }
+    if anew.moved != [0, 0] {
+        let [fall, rise] = anew.moved.map(|fs| Decimal::new(i128::from(fs), scenario.unit));
+        text += &format!(", moved = {{ rise = {rise}, fall = {fall} }}");
     }
     text
 }

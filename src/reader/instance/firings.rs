@@ -13,7 +13,7 @@ use crate::instance::{Anew, Drawn, Firings};
 use crate::time::Span;
 
 const KEYS: [&str; 3] = ["draw", "drawn", "given"];
-const GATE_KEYS: [&str; 8] = ["key", "rise", "fall", "one_draw", "tracking", "scale", "mismatch", "common"];
+const GATE_KEYS: [&str; 9] = ["key", "rise", "fall", "one_draw", "tracking", "scale", "mismatch", "common", "moved"];
 
 impl Case<'_> {
     pub(super) fn firings(&self, walk: &mut Walk, value: Option<&Value<'_>>) -> Option<Firings> {
@@ -161,7 +161,24 @@ impl Case<'_> {
                 None
             }
         };
-        Some(Anew { key: key?, ranges: [ranges.0?, ranges.1?], one_draw, group })
+        let moved = part("moved").map_or(Some([0; 2]), |value| {
+            let help = "write how far its delays are moved, as in `{ rise = 0.001, fall = -0.002 }`";
+            let table = walk.table(value, help)?;
+            let mut found = [None; 2];
+            for (key, value) in table.iter() {
+                match key.get_ref().as_ref() {
+                    "fall" => found[0] = self.signed(walk, value),
+                    "rise" => found[1] = self.signed(walk, value),
+                    _ => walk.unknown_key(key, &["rise", "fall"], "`moved`"),
+                }
+            }
+            let [Some(fall), Some(rise)] = found else {
+                walk.fault(value.span(), format!("`moved` of {place} is not a rise and a fall"), help);
+                return None;
+            };
+            Some([fall, rise])
+        });
+        Some(Anew { moved: moved?, key: key?, ranges: [ranges.0?, ranges.1?], one_draw, group })
     }
 
     /// `[min, typ, max]`.
