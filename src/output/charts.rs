@@ -14,9 +14,9 @@ use crate::time::{Span, Unit};
 /// Most panels of one chart.
 pub const MOST_PANELS: usize = 12;
 /// Size of a panel, pixels.
-const PANEL: (u32, u32) = (500, 230);
+pub(super) const PANEL: (u32, u32) = (500, 230);
 /// Height of title and notes, pixels.
-const HEAD: u32 = 34;
+pub(super) const HEAD: u32 = 34;
 /// Most bars that get an outline.
 const MOST_OUTLINED: usize = 24;
 /// Font size that the backend turns into the small size of pictures: it divides by 1.24.
@@ -216,12 +216,12 @@ fn fitting(longest: Span, unit: Unit) -> Unit {
     Unit::ALL.into_iter().rev().find(|it| longest.fs() >= it.femtoseconds()).unwrap_or(Unit::Fs)
 }
 
-fn small() -> TextStyle<'static> {
+pub(super) fn small() -> TextStyle<'static> {
     ("sans-serif", SMALL).into_font().color(&rgb(ink::INK))
 }
 
 /// An ink as the backend takes it.
-fn rgb(ink: &str) -> RGBColor {
+pub(super) fn rgb(ink: &str) -> RGBColor {
     let part = |at: usize| ink.get(at..at + 2).and_then(|hex| u8::from_str_radix(hex, 16).ok()).unwrap_or(0);
     RGBColor(part(1), part(3), part(5))
 }

@@ -7,7 +7,7 @@ use stillgate::logic::{Bits, State, Value};
 use stillgate::review::{Call, Review, StatesReport, Verdict};
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{
-    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, UnseenMass, WindowReport, Worst,
+    AtMost, Boards, Finding, Outcome, Ranges, RuleReport, Settling, SweepReport, Tie, UnseenMass, WindowReport, Worst,
 };
 use stillgate::time::Span;
 
@@ -160,6 +160,8 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
         at_most: None,
         unseen: Some(UnseenMass { moment: 3, once: 120, of: 10_000, estimate: 0.012, upper: 0.112 }),
         unseen_untold: 0,
+        missing: Ranges::default(),
+        stopped: None,
         conditions: Vec::new(),
     }
 }
@@ -228,6 +230,8 @@ pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
         at_most: None,
         unseen: None,
         unseen_untold: 0,
+        missing: Ranges::default(),
+        stopped: None,
         conditions: Vec::new(),
     }
 }

@@ -7,6 +7,7 @@
 
 mod check;
 mod flow;
+mod part;
 mod parts;
 mod review;
 mod run;
@@ -14,6 +15,7 @@ mod states;
 mod sweep;
 
 pub use check::check;
+pub use part::part;
 pub use review::review;
 pub use run::run;
 pub use states::states;

@@ -9,6 +9,7 @@ mod findings;
 mod flow;
 mod notes;
 mod paper;
+mod part;
 mod review;
 mod rules;
 mod run;
@@ -19,6 +20,7 @@ mod sweep;
 
 pub use check::check;
 pub use paper::Style;
+pub use part::part;
 pub use review::review;
 pub use run::run;
 pub use states::states;
