@@ -19,6 +19,7 @@ mod judges_agree;
 mod malformed;
 mod outcomes_agree;
 mod outside;
+mod parts;
 mod support;
 mod sweeps_agree;
 mod verdicts;

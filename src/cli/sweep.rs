@@ -28,12 +28,15 @@ pub fn run(arguments: &Long) -> Result<ExitCode, Failure> {
     }
     let folder = match (&arguments.unfinished, &common.folder.out) {
         // the files go where the whole sweep would have left them
-        (Some(file), None) => file.parent().map_or_else(PathBuf::new, Path::to_path_buf),
+        (Some(file), None) => match file.parent() {
+            Some(folder) if !folder.as_os_str().is_empty() => folder.to_path_buf(),
+            _ => PathBuf::from("."),
+        },
         _ => folder(input, &common.folder)?,
     };
     let (from, to) = part.wanted;
     let mut kept = Kept { path: folder.join(format!("unfinished-{from}-{}.{SUFFIX}", to - 1)), ours: false };
-    kept.ours = arguments.unfinished.as_ref().is_some_and(|file| *file == kept.path);
+    kept.ours = arguments.unfinished.as_ref().is_some_and(|file| same(file, &kept.path));
     if !kept.ours && kept.path.exists() && !input.quiet {
         let path = kept.path.display();
         say_aside(&format!("note: {path} is there already; `stillgate sweep --continue {path}` goes on with it\n"));
@@ -46,8 +49,8 @@ pub fn run(arguments: &Long) -> Result<ExitCode, Failure> {
     let mut cases = std::mem::replace(&mut part.cases, Cases::new(&scenario, &asked));
     let mut curve = part.curve.take();
     let stops = Stops { range: from..to, every: arguments.keep_every };
-    let done: Result<(), Failure> = sweeper
-        .go_on(&mut cases, curve.as_mut(), &stops, &control, &mut |cases, curve| kept.save(&part, cases, curve));
+    let done: Result<(), Failure> =
+        sweeper.go_on(&mut cases, curve.as_mut(), &stops, &control, &mut |cases, curve| kept.save(&part, cases, curve));
     finish(bar);
     done?;
 
@@ -92,6 +95,11 @@ pub fn run(arguments: &Long) -> Result<ExitCode, Failure> {
         return Ok(ExitCode::SUCCESS);
     }
     Ok(ExitCode::from(INTERRUPTED))
+}
+
+/// Are these the same file?
+fn same(a: &Path, b: &Path) -> bool {
+    matches!((a.canonicalize(), b.canonicalize()), (Ok(a), Ok(b)) if a == b)
 }
 
 /// The sweep as far as it is: nothing done yet, or what a file has.
@@ -143,7 +151,9 @@ fn wanted(arguments: &Long, scenario: &Scenario) -> Result<Option<Range<u64>>, F
         let range = before(k - 1) * tries..(before(k).saturating_mul(tries)).min(plan.samples);
         if range.is_empty() {
             let what = if tries > 1 { "boards" } else { "samples" };
-            return Err(Failure::Bad(format!("`--part {k}/{n}`: the sweep has only {boards} {what}; take fewer parts")));
+            return Err(Failure::Bad(format!(
+                "`--part {k}/{n}`: the sweep has only {boards} {what}; take fewer parts"
+            )));
         }
         return Ok(Some(range));
     }

@@ -1,6 +1,7 @@
 //! How the shares of a sweep come to rest, look by look: as a picture and as the table beside it.
 
 use plotters::prelude::*;
+use plotters::style::text_anchor::{HPos, Pos, VPos};
 
 use crate::findings::{Asked, Subject};
 use crate::output::charts::{HEAD, MOST_PANELS, PANEL, rgb, small};
@@ -10,6 +11,9 @@ use crate::output::tables;
 use crate::output::words::{self, six};
 use crate::scenario::{Condition, Scenario};
 use crate::sweep::{Point, Stopped, SweepReport};
+
+/// Most decades with a label.
+const MOST_TICKS: usize = 6;
 
 type Area<'a> = DrawingArea<SVGBackend<'a>, plotters::coord::Shift>;
 type Drawn = Result<(), DrawingAreaErrorKind<std::io::Error>>;
@@ -171,12 +175,47 @@ fn draw(
     root.present()
 }
 
-/// Whole decades around some numbers above 0.
-fn decades(numbers: impl Iterator<Item = f64> + Clone) -> (f64, f64) {
+/// The part of a log axis that shows some numbers above 0, with a little room at both ends.
+fn stretch(numbers: impl Iterator<Item = f64> + Clone) -> (f64, f64) {
     let low = numbers.clone().fold(f64::INFINITY, f64::min);
     let high = numbers.fold(0.0, f64::max);
-    let (from, to) = (libm::floor(libm::log10(low)), libm::ceil(libm::log10(high)));
-    (libm::exp10(from), libm::exp10(to.max(from + 1.0)))
+    let room = 0.05 * libm::log10(high / low).max(0.1);
+    (libm::log10(low) - room, libm::log10(high) + room)
+}
+
+/// Round numbers on a log axis from 10^`from` to 10^`to`, rising: decades; of few decades also twice and five times each; of
+/// less than one, round steps.
+fn ticks(from: f64, to: f64) -> Vec<f64> {
+    let inside = |tick: &f64| (from..=to).contains(&libm::log10(*tick));
+    let (first, last) = (libm::floor(from) as i32, libm::ceil(to) as i32);
+    // divided, and not multiplied by a power below 1, so that labels are round
+    let times = |digit: f64, power: i32| match power {
+        0.. => digit * 10f64.powi(power),
+        _ => digit / 10f64.powi(-power),
+    };
+    let each = |digits: &[f64]| -> Vec<f64> {
+        (first..=last).flat_map(|power| digits.iter().map(move |digit| times(*digit, power))).filter(inside).collect()
+    };
+    let decades = each(&[1.0]);
+    if decades.len() >= 4 {
+        let every = decades.len().div_ceil(MOST_TICKS);
+        return decades.into_iter().step_by(every).collect();
+    }
+    let some = each(&[1.0, 2.0, 5.0]);
+    if some.len() >= 3 {
+        return some;
+    }
+    let (low, high) = (libm::exp10(from), libm::exp10(to));
+    let power = libm::floor(libm::log10((high - low) / 3.0)) as i32;
+    let steps = [5.0, 2.0, 1.0].map(|digit| times(digit, power));
+    let step = steps.into_iter().find(|step| (high - low) / step >= 3.0).unwrap_or(steps[2]);
+    let numbers = libm::ceil(low / step) as u64..=libm::floor(high / step) as u64;
+    let each = numbers.map(|n| match power {
+        0.. => n as f64 * step,
+        // as above
+        _ => n as f64 * (step * 10f64.powi(-power)).round() / 10f64.powi(-power),
+    });
+    each.filter(inside).take(3 * MOST_TICKS).collect()
 }
 
 /// One finding.
@@ -193,39 +232,43 @@ fn panel(area: &Area<'_>, scenario: &Scenario, asked: &Asked, report: &SweepRepo
     let text = words::clean(&title(scenario, asked, line));
     let caption = cut_end(&text, ink::BODY, f64::from(PANEL.0) - 90.0).unwrap_or(text);
     area.draw(&Text::new(caption, (70, 0), ("sans-serif", ink::BODY * 1.24).into_font().color(&rgb(ink::INK))))?;
-    let (left, right) = decades(marks.iter().map(|it| it.0));
-    let (bottom, top) = decades(marks.iter().flat_map(|it| [it.2, it.3]));
-    let mut chart = ChartBuilder::on(area)
-        .margin_top(22)
-        .margin_right(24)
-        .margin_left(10)
-        .set_label_area_size(LabelAreaPosition::Left, 60)
-        .set_label_area_size(LabelAreaPosition::Bottom, 42)
-        .build_cartesian_2d((left..right).log_scale(), (bottom..top).log_scale())?;
-    chart
-        .configure_mesh()
-        .disable_x_mesh()
-        .disable_y_mesh()
-        .axis_style(rgb(ink::QUIET))
-        .label_style(small())
-        .axis_desc_style(small())
-        .x_labels(6)
-        .y_labels(5)
-        .x_label_formatter(&|x| words::count(x.round() as u64))
-        .y_label_formatter(&|y| words::three(*y))
-        .x_desc("draws")
-        .y_desc(format!("share of {}", unit(report)))
-        .draw()?;
-    let line = rgb(ink::INK).stroke_width(1);
+
+    let (from_x, to_x) = stretch(marks.iter().map(|it| it.0));
+    // a share that every draw shows has its lower end above 0, too
+    let (from_y, to_y) = stretch(marks.iter().flat_map(|it| [it.2, it.3]).filter(|it| *it > 0.0));
+    let (left, right, top, bottom) = (80.0, f64::from(PANEL.0) - 24.0, 26.0, f64::from(PANEL.1) - 48.0);
+    let place = |x: f64, y: f64| -> (i32, i32) {
+        let along = (libm::log10(x) - from_x) / (to_x - from_x);
+        let up = (libm::log10(y.max(f64::MIN_POSITIVE)).max(from_y) - from_y) / (to_y - from_y);
+        ((left + along * (right - left)).round() as i32, (bottom - up * (bottom - top)).round() as i32)
+    };
+    let (x0, x1, y0, y1) = (left as i32, right as i32, bottom as i32, top as i32);
+    let quiet = rgb(ink::QUIET).stroke_width(1);
+    area.draw(&PathElement::new(vec![(x0, y1), (x0, y0), (x1, y0)], quiet))?;
+    let label = |side, upright| small().pos(Pos::new(side, upright));
+    for tick in ticks(from_x, to_x) {
+        let x = place(tick, 1.0).0;
+        area.draw(&PathElement::new(vec![(x, y0), (x, y0 + 4)], quiet))?;
+        area.draw(&Text::new(words::count(tick.round() as u64), (x, y0 + 8), label(HPos::Center, VPos::Top)))?;
+    }
+    for tick in ticks(from_y, to_y) {
+        let y = place(1.0, tick).1;
+        area.draw(&PathElement::new(vec![(x0 - 4, y), (x0, y)], quiet))?;
+        area.draw(&Text::new(words::three(tick), (x0 - 8, y), label(HPos::Right, VPos::Center)))?;
+    }
+    let middle = ((left + right) / 2.0).round() as i32;
+    area.draw(&Text::new("draws", (middle, y0 + 24), label(HPos::Center, VPos::Top)))?;
+    let turned = small().transform(FontTransform::Rotate270).pos(Pos::new(HPos::Center, VPos::Center));
+    area.draw(&Text::new(format!("share of {}", unit(report)), (14, (y0 + y1) / 2), turned))?;
+
+    let thin = rgb(ink::INK).stroke_width(1);
     for (x, share, low, high) in marks {
-        chart.draw_series(std::iter::once(PathElement::new(vec![(x, low.max(bottom)), (x, high)], line)))?;
-        for end in [low.max(bottom), high] {
-            let (x, y) = chart.backend_coord(&(x, end));
-            let origin = area.get_base_pixel();
-            let (x, y) = (x - origin.0, y - origin.1);
-            area.draw(&PathElement::new(vec![(x - 4, y), (x + 4, y)], line))?;
+        let ((x, middle), lower, upper) = (place(x, share), place(x, low).1, place(x, high).1);
+        area.draw(&PathElement::new(vec![(x, lower), (x, upper)], thin))?;
+        for end in [lower, upper] {
+            area.draw(&PathElement::new(vec![(x - 4, end), (x + 4, end)], thin))?;
         }
-        chart.draw_series(std::iter::once(Circle::new((x, share), 3, rgb(ink::INK).filled())))?;
+        area.draw(&Circle::new((x, middle), 3, rgb(ink::INK).filled()))?;
     }
     Ok(())
 }
@@ -234,11 +277,22 @@ fn panel(area: &Area<'_>, scenario: &Scenario, asked: &Asked, report: &SweepRepo
 mod tests {
     use super::*;
 
+    fn between(low: f64, high: f64) -> Vec<f64> {
+        ticks(libm::log10(low), libm::log10(high))
+    }
+
     #[test]
-    fn axes_are_whole_decades() {
-        let near = |(a, b): (f64, f64), (c, d): (f64, f64)| (a / c - 1.0).abs() < 1e-12 && (b / d - 1.0).abs() < 1e-12;
-        assert!(near(decades([0.2, 0.3].into_iter()), (0.1, 1.0)));
-        assert!(near(decades([1000.0].into_iter()), (1000.0, 10_000.0)));
-        assert!(near(decades([0.003, 0.2].into_iter()), (0.001, 1.0)));
+    fn ticks_are_round_and_few() {
+        assert_eq!(between(900.0, 9000.0), [1000.0, 2000.0, 5000.0]);
+        assert_eq!(between(900.0, 2_000_000.0), [1e3, 1e4, 1e5, 1e6]);
+        assert_eq!(between(0.11, 0.17), [0.12, 0.14, 0.16]);
+        assert_eq!(between(3e-5, 4e-2), [1e-4, 1e-3, 1e-2]);
+        assert_eq!(between(0.9991, 1.0), [0.9992, 0.9994, 0.9996, 0.9998, 1.0]);
+        assert_eq!(between(2e-9, 0.9).len(), 4, "every second decade");
+        for (low, high) in [(1e-9, 1.1e-9), (0.5, 0.5001), (1e3, 4e18), (0.9, 1.3), (1.0, 1.25)] {
+            let ticks = between(low, high);
+            assert!((2..=12).contains(&ticks.len()), "{low} {high}: {ticks:?}");
+            assert!(ticks.windows(2).all(|two| two[0] < two[1]), "{ticks:?}");
+        }
     }
 }

@@ -159,12 +159,7 @@ pub fn conclude(
     Ok(report)
 }
 
-fn conclude_cases(
-    scenario: &Scenario,
-    asked: &Asked,
-    cases: &Cases,
-    looks: u64,
-) -> Result<SweepReport, ReviewError> {
+fn conclude_cases(scenario: &Scenario, asked: &Asked, cases: &Cases, looks: u64) -> Result<SweepReport, ReviewError> {
     let mut report = conclude_one(scenario, asked, &cases.0[0].tally, looks)?;
     for (condition, case) in scenario.conditions.iter().zip(&cases.0[1..]) {
         let sweep = conclude_one(&scenario.under(condition), asked, &case.tally, looks)?;

@@ -23,13 +23,8 @@ impl Tally {
     pub(super) fn fits(&self, scenario: &Scenario, asked: &Asked) -> Result<(), &'static str> {
         let plan = &scenario.plan;
         let (moments, questions) = (scenario.stimulus.moments.len(), asked.questions.len());
-        let shape = Shape {
-            scenario,
-            samples: self.samples,
-            planned: plan.samples,
-            tries: plan.tries,
-            boards: self.boards,
-        };
+        let shape =
+            Shape { scenario, samples: self.samples, planned: plan.samples, tries: plan.tries, boards: self.boards };
         let boards = if plan.tries > 1 { self.samples.div_ceil(plan.tries) } else { 0 };
         let checks = [
             (self.samples <= plan.samples, "more samples than the sweep has"),

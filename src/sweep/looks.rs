@@ -134,7 +134,13 @@ impl Curve {
                     (None, Some(boards)) => (boards.failing, boards.of),
                     (None, None) => continue,
                 };
-                self.points.push(Point { samples: report.samples, case: case as u32, subject: finding.subject, count, of });
+                self.points.push(Point {
+                    samples: report.samples,
+                    case: case as u32,
+                    subject: finding.subject,
+                    count,
+                    of,
+                });
             }
         }
     }

@@ -45,3 +45,35 @@ impl<'de, K: Deserialize<'de> + Ord, V: Deserialize<'de>> Visitor<'de> for Pairs
         Ok(map)
     }
 }
+
+/// A map that may not be there.
+pub(super) mod optional {
+    use std::collections::BTreeMap;
+
+    use serde::{Deserialize, Deserializer, Serialize, Serializer};
+
+    /// A map, read as pairs.
+    #[derive(Deserialize)]
+    #[serde(bound(deserialize = "K: Deserialize<'de>, V: Deserialize<'de>"))]
+    struct Map<K: Ord, V>(#[serde(deserialize_with = "super::deserialize")] BTreeMap<K, V>);
+
+    /// Writes it.
+    pub(in super::super) fn serialize<K, V, S>(map: &Option<BTreeMap<K, V>>, to: S) -> Result<S::Ok, S::Error>
+    where
+        K: Serialize + Ord,
+        V: Serialize,
+        S: Serializer,
+    {
+        map.as_ref().map(|map| map.iter().collect::<Vec<_>>()).serialize(to)
+    }
+
+    /// Reads it. Errors: keys that do not rise.
+    pub(in super::super) fn deserialize<'de, K, V, D>(from: D) -> Result<Option<BTreeMap<K, V>>, D::Error>
+    where
+        K: Deserialize<'de> + Ord,
+        V: Deserialize<'de>,
+        D: Deserializer<'de>,
+    {
+        Ok(Option::<Map<K, V>>::deserialize(from)?.map(|map| map.0))
+    }
+}

@@ -3,7 +3,7 @@
 
 use serde::{Deserialize, Serialize};
 
-use super::cases::Cases;
+use super::cases::{Case, Cases};
 use super::looks::Curve;
 use super::ranges::Ranges;
 use crate::delay::Marginal;
@@ -171,6 +171,9 @@ fn samples_of(samples: &Ranges, condition: &str) -> String {
 impl Ranges {
     /// As people read them, ends included: `samples 0 to 99, 120, and 200 to 299 (201 samples)`.
     pub fn words(&self) -> String {
+        if self.is_empty() {
+            return "no sample".to_string();
+        }
         let each = self.iter().take(NAMED).map(|it| match it.end - it.start {
             1 => it.start.to_string(),
             _ => format!("{} to {}", it.start, it.end - 1),
@@ -182,8 +185,7 @@ impl Ranges {
         }
         let list = match each.split_last() {
             Some((last, rest)) if !rest.is_empty() => format!("{} and {last}", rest.join(", ")),
-            Some((only, _)) => only.clone(),
-            None => "none".to_string(),
+            _ => each.concat(),
         };
         match self.count() {
             1 => format!("sample {list}"),
@@ -281,13 +283,16 @@ impl Parts {
         let Some(part) = self.whole else { return Err(refusals) };
         // what was refused may be what is missing
         if whole && refusals.is_empty() {
-            for case in &part.cases.0 {
-                let samples = case.done.missing(0..part.plan.samples);
-                if !samples.is_empty() {
+            let missing = |case: &Case| case.done.missing(0..part.plan.samples);
+            let nominal = part.cases.0.first().map(missing).unwrap_or_default();
+            for (number, case) in part.cases.0.iter().enumerate() {
+                let samples = missing(case);
+                // what all lack alike is told once
+                if !samples.is_empty() && (number == 0 || samples != nominal) {
                     refusals.push(Refusal::Gap { condition: case.condition.clone(), samples });
                 }
             }
         }
-        if refusals.is_empty() { Ok(part) } else { Err(refusals) }
+        if refusals.is_empty() { Ok(Part { piece: true, ..part }) } else { Err(refusals) }
     }
 }

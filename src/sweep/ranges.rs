@@ -57,7 +57,11 @@ impl Ranges {
             if !both.is_empty() {
                 common.push(both);
             }
-            if a.end < b.end { ours.next() } else { theirs.next() };
+            if a.end < b.end {
+                ours.next()
+            } else {
+                theirs.next()
+            };
         }
         Ranges(common)
     }

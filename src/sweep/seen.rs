@@ -124,9 +124,8 @@ impl<K: Key> Seen<K> {
     pub(super) fn fits(&self, samples: u64, planned: u64, known: impl Fn(&K) -> bool) -> bool {
         let counts = self.kept.values().try_fold(0u64, |sum, seen| sum.checked_add(seen.count));
         let all = if self.level == 0 { counts == Some(self.all) } else { counts.is_some_and(|sum| sum <= self.all) };
-        let each = |(key, seen): (&K, &Count)| {
-            keeps(self.level, key) && seen.count > 0 && seen.first < planned && known(key)
-        };
+        let each =
+            |(key, seen): (&K, &Count)| keeps(self.level, key) && seen.count > 0 && seen.first < planned && known(key);
         all && self.level <= 64 && self.all <= samples && self.kept.len() <= KEPT && self.kept.iter().all(each)
     }
 

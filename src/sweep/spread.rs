@@ -27,6 +27,7 @@ pub struct Spread {
     min: Option<u64>,
     max: Option<u64>,
     /// Value to count; `None` once there are too many different ones.
+    #[serde(with = "super::pairs::optional")]
     exact: Option<BTreeMap<u64, u64>>,
     /// Octave to counts of its classes.
     #[serde(with = "super::pairs")]

@@ -62,9 +62,9 @@ pub(super) fn body(
         };
         paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run.{missing}"));
     }
-    for condition in report.conditions.iter().filter(|it| !it.sweep.missing.is_empty()) {
+    for condition in report.conditions.iter().filter(|it| it.sweep.missing != report.missing) {
         let (name, missing) = (&condition.condition.name, condition.sweep.missing.words());
-        paper.say(2, Tone::Unsure, &format!("Under condition {name} are missing: {missing}."));
+        paper.say(2, Tone::Unsure, &format!("Under condition {name}: missing {missing}."));
     }
     steps::steps(paper, scenario, report);
     findings::findings(paper, page, scenario, asked, report);
