@@ -120,7 +120,7 @@ impl Spread {
         let ends = match (counts.first(), counts.last(), self.min, self.max) {
             (None, None, None, None) => true,
             (Some(first), Some(last), Some(min), Some(max)) => {
-                let within = |class: &(u64, u64, u64), fs: u64| fs >= class.0 && fs - class.0 <= class.1.max(1) - 1;
+                let within = |class: &(u64, u64, u64), fs: u64| fs >= class.0 && fs - class.0 < class.1.max(1);
                 max < LONGEST && within(first, min) && within(last, max) && min <= max
             }
             _ => false,
