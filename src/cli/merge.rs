@@ -4,12 +4,13 @@ use std::path::Path;
 use std::process::ExitCode;
 
 use super::args::Merging;
-use super::common::{Failure, folder_of, options};
+use super::common::{Failure, folder_of, options, program};
 use super::sweep::{Results, say_part};
+use crate::control::Control;
 use crate::findings::Asked;
 use crate::output::bundle;
 use crate::reader::{read_part, scenario_of};
-use crate::review;
+use crate::review::Sweeper;
 use crate::scenario::Scenario;
 use crate::sweep::Parts;
 
@@ -43,7 +44,9 @@ pub fn run(arguments: &Merging) -> Result<ExitCode, Failure> {
         say_part(&part, path, arguments.json, arguments.quiet)?;
         return Ok(ExitCode::SUCCESS);
     }
-    let report = review::conclude(&scenario, &asked, &part.cases, None)?;
+    let control = Control::default();
+    let program = program(&scenario, &control)?;
+    let report = Sweeper::new(&scenario, &program, &asked, 1)?.conclude(&part.cases, None, &control)?;
     let folder = folder_of(part.called.as_deref().map(Path::new), &arguments.folder)?;
     let results = Results {
         scenario: &scenario,

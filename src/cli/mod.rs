@@ -3,6 +3,7 @@
 mod args;
 mod check;
 mod common;
+mod limit;
 mod merge;
 mod review;
 mod run;
@@ -31,6 +32,7 @@ pub fn main() -> ExitCode {
         Command::Run(it) => run::run(&it),
         Command::Sweep(it) => sweep::run(&it),
         Command::Merge(it) => merge::run(&it),
+        Command::Limit(it) => limit::run(&it),
         Command::States(it) => states::run(&it),
         Command::Check(it) => check::run(&it),
     };

@@ -72,7 +72,7 @@ pub fn run(arguments: &Long) -> Result<ExitCode, Failure> {
             kept.tell(&cases, from..to);
         }
     } else {
-        let report = review::conclude(&scenario, &asked, &cases, curve.as_ref())?;
+        let report = sweeper.conclude(&cases, curve.as_ref(), &control)?;
         let results = Results {
             scenario: &scenario,
             asked: &asked,

@@ -22,8 +22,8 @@ const MOST_OUTLINED: usize = 24;
 /// Font size that the backend turns into the small size of pictures: it divides by 1.24.
 const SMALL: f64 = ink::SMALL * 1.24;
 
-type Area<'a> = DrawingArea<SVGBackend<'a>, Shift>;
-type Drawn = Result<(), DrawingAreaErrorKind<std::io::Error>>;
+pub(super) type Area<'a> = DrawingArea<SVGBackend<'a>, Shift>;
+pub(super) type Drawn = Result<(), DrawingAreaErrorKind<std::io::Error>>;
 
 /// Settling-time histograms, one panel a step, at most [`MOST_PANELS`]; the caption names what is left out. Lines mark
 /// median, 99th percentile and the limit from the rules. [`tables::settling`](crate::output::tables::settling) has the
@@ -208,7 +208,7 @@ fn limit(scenario: &Scenario, moment: u32) -> Option<Span> {
 }
 
 /// The unit in which an axis up to `longest` has handy numbers.
-fn fitting(longest: Span, unit: Unit) -> Unit {
+pub(super) fn fitting(longest: Span, unit: Unit) -> Unit {
     let one = unit.femtoseconds();
     if (one..one.saturating_mul(100_000)).contains(&longest.fs()) {
         return unit;

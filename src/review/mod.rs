@@ -7,6 +7,7 @@ mod departure;
 mod report;
 mod single;
 mod sweeping;
+mod ties;
 mod verdict;
 mod why;
 
@@ -16,9 +17,9 @@ pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, comp
 pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
-pub use sweeping::{Saved, Stops, Sweeper, conclude, sweep};
+pub use sweeping::{Saved, Stops, Sweeper, sweep};
+pub use verdict::{grouped, verdict, without_draws};
 pub use why::{Away, Needs, Pull, Why};
-pub use verdict::{grouped, verdict, with_typical};
 
 use crate::circuit::NetId;
 use crate::control::Control;
@@ -64,21 +65,21 @@ pub fn review(
     let asked = Asked::of(scenario);
     let states = states(scenario, control)?;
     let typical = run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?;
-    contained::run(scenario, "the typical run", &typical.trace, control)?;
     let sweep = sweep(scenario, program, &asked, threads, control)?;
     let mut shown = Vec::new();
     for index in to_show(&asked, &sweep) {
         let finding = &sweep.findings[index];
-        let Some(sample) = finding.worst_sample.or(finding.sample) else { continue };
-        let Some(run) = run_one(scenario, program, &asked, Which::Sample(sample), control) else { continue };
+        let Some(which) = finding.shown_by() else { continue };
+        let Some(run) = run_one(scenario, program, &asked, which, control) else { continue };
         let race = matches!(finding.subject.kind, Kind::CriticalRace | Kind::NonCriticalRace);
         if !race && !run.facts.iter().any(|fact| fact.subject == finding.subject) {
             let kind = finding.subject.kind.word();
-            return Err(ReviewError::Contradiction(format!("sample {sample} run alone does not show its {kind}")));
+            let case = run.which.words();
+            return Err(ReviewError::Contradiction(format!("{case} run alone does not show its {kind}")));
         }
         shown.push((index, run));
     }
-    let verdict = with_typical(scenario, &sweep, &typical, verdict(scenario, &sweep));
+    let verdict = verdict(scenario, &sweep);
     let why = vec![None; sweep.findings.len()];
     Ok(Review { asked, states, typical: Some(typical), sweep, shown, why, verdict })
 }

@@ -4,7 +4,7 @@
 use std::ops::Range;
 use std::sync::Arc;
 
-use super::{ReviewError, contained};
+use super::{ReviewError, contained, ties};
 use crate::control::Control;
 use crate::engine::Program;
 use crate::findings::Asked;
@@ -13,8 +13,10 @@ use crate::statics;
 use crate::sweep::{Cases, ConditionReport, Curve, Ranges, Stopped, SweepReport, Tally, looks, run_samples};
 
 /// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
-/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows. Then
-/// the same for every condition of the scenario. A cancelled sweep concludes from what was complete.
+/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows; so
+/// are typical, min and max runs. What only these show is a finding, too, and what exactly equal times have to do with
+/// findings is looked into. Then the same for every condition of the scenario. A cancelled sweep concludes from what was
+/// complete.
 pub fn sweep(
     scenario: &Scenario,
     program: &Program,
@@ -23,8 +25,9 @@ pub fn sweep(
     control: &Control,
 ) -> Result<SweepReport, ReviewError> {
     let mut cases = Cases::new(scenario, asked);
-    Sweeper::new(scenario, program, asked, threads)?.run(&mut cases, 0..scenario.plan.samples, control);
-    conclude(scenario, asked, &cases, None)
+    let sweeper = Sweeper::new(scenario, program, asked, threads)?;
+    sweeper.run(&mut cases, 0..scenario.plan.samples, control);
+    sweeper.conclude(&cases, None, control)
 }
 
 /// Runs the samples of a scenario under its own delays and under all its conditions.
@@ -130,6 +133,33 @@ impl<'a> Sweeper<'a> {
         }
         Ok(())
     }
+
+    /// Draws the conclusions of a sweep of all samples of the plan and checks them, as [`sweep`] does. `curve`: it was to
+    /// stop when sure. If the control cancels, equal times are not looked into.
+    pub fn conclude(
+        &self,
+        cases: &Cases,
+        curve: Option<&Curve>,
+        control: &Control,
+    ) -> Result<SweepReport, ReviewError> {
+        let scenario = self.scenario;
+        let looks = curve.map_or(1, |_| looks(&scenario.plan).len() as u64);
+        let mut report = conclude_cases(scenario, self.asked, cases, looks)?;
+        let end = curve.filter(|curve| curve.sure).map_or(scenario.plan.samples, |curve| curve.looked);
+        report.missing = cases.0[0].done.missing(0..end);
+        report.stopped = curve.map(|curve| Box::new(Stopped::of(curve.clone(), looks, &report)));
+        let runs = ties::look(scenario, self.program, self.asked, &cases.0[0].tally, &mut report, control)?;
+        for (which, trace) in &runs {
+            contained::run(scenario, &format!("the {} run", which.words()), trace, &Control::default())?;
+        }
+        for ((condition, case), (scenario, program)) in
+            report.conditions.iter_mut().zip(&cases.0[1..]).zip(&self.conditions)
+        {
+            condition.sweep.missing = case.done.missing(0..end);
+            ties::look(scenario, program, self.asked, &case.tally, &mut condition.sweep, control)?;
+        }
+        Ok(report)
+    }
 }
 
 /// The same control, whose progress is that of a stretch of something longer.
@@ -139,24 +169,6 @@ fn shifted(control: &Control, before: u64, total: u64) -> Control {
         shifted
     });
     Control { progress, ..control.clone() }
-}
-
-/// Draws the conclusions of a sweep of all samples of the plan and checks them. `curve`: it was to stop when sure.
-pub fn conclude(
-    scenario: &Scenario,
-    asked: &Asked,
-    cases: &Cases,
-    curve: Option<&Curve>,
-) -> Result<SweepReport, ReviewError> {
-    let looks = curve.map_or(1, |_| looks(&scenario.plan).len() as u64);
-    let mut report = conclude_cases(scenario, asked, cases, looks)?;
-    let end = curve.filter(|curve| curve.sure).map_or(scenario.plan.samples, |curve| curve.looked);
-    report.missing = cases.0[0].done.missing(0..end);
-    for (condition, case) in report.conditions.iter_mut().zip(&cases.0[1..]) {
-        condition.sweep.missing = case.done.missing(0..end);
-    }
-    report.stopped = curve.map(|curve| Box::new(Stopped::of(curve.clone(), looks, &report)));
-    Ok(report)
 }
 
 fn conclude_cases(scenario: &Scenario, asked: &Asked, cases: &Cases, looks: u64) -> Result<SweepReport, ReviewError> {

@@ -29,6 +29,7 @@ impl Tally {
         let checks = [
             (self.samples <= plan.samples, "more samples than the sweep has"),
             ((self.planned, self.tries) == (plan.samples, plan.tries), "a tally of another plan"),
+            (self.failing <= self.samples, "more failing samples than there are"),
             (self.part_boards.is_empty(), "boards that are cut short"),
             (self.boards == boards, "a wrong number of boards"),
             (self.windows.len() == moments, "a wrong number of steps"),

@@ -17,14 +17,14 @@ mod tally;
 mod unseen;
 
 pub use cases::{Case, Cases};
-pub use conclude::{conclude, conclude_after};
+pub use conclude::{conclude, conclude_after, race_breaks, worst_first};
 pub use looks::{Curve, Point, Until, UntilError, looks};
 pub use part::{Foreign, Overrides, Part, Parts, Refusal};
 pub use part_file::{Damage, FORMAT};
 pub use ranges::Ranges;
 pub use report::{
     AtMost, Boards, Cause, ConditionReport, Finding, Outcome, RuleReport, Settling, Stopped, SweepReport, Tie,
-    WindowReport, Worst,
+    TiesSought, Unmoved, WindowReport, Worst,
 };
 pub use run::run_samples;
 pub use stats::{clopper_pearson, none_in};

@@ -121,7 +121,8 @@ impl Read {
 
     /// Everything that a sweep says and leaves: text, JSON and files.
     fn said(&self, cases: &Cases) -> Result<Vec<bundle::File>, review::ReviewError> {
-        let report = review::conclude(&self.scenario, &self.asked, cases, None)?;
+        let sweeper = Sweeper::new(&self.scenario, &self.program, &self.asked, 1)?;
+        let report = sweeper.conclude(cases, None, &Control::default())?;
         let verdict = review::verdict(&self.scenario, &report);
         let mut said = bundle::of_sweep(&self.scenario, &self.asked, &report);
         said.add("sweep.json", json::sweep(&self.scenario, &self.asked, &report));
@@ -197,7 +198,8 @@ fn keys(value: &serde_json::Value, at: &str, into: &mut std::collections::BTreeS
 fn what_a_part_holds_changes_only_with_its_format() {
     let read = Read::new(&permit(200));
     let mut part = read.part(0, 200);
-    let report = review::conclude(&read.scenario, &read.asked, &part.cases, None).unwrap();
+    let sweeper = Sweeper::new(&read.scenario, &read.program, &read.asked, 1).unwrap();
+    let report = sweeper.conclude(&part.cases, None, &Control::default()).unwrap();
     let mut curve = sweep::Curve::new("0.1".parse().unwrap());
     curve.look(&report);
     part.curve = Some(curve);

@@ -7,6 +7,7 @@
 
 mod check;
 mod flow;
+mod limit;
 mod part;
 mod parts;
 mod review;
@@ -15,6 +16,7 @@ mod states;
 mod sweep;
 
 pub use check::check;
+pub use limit::{limit, limit_map};
 pub use part::part;
 pub use review::review;
 pub use run::run;
