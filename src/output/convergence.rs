@@ -103,7 +103,7 @@ fn share(point: &Point) -> f64 {
 }
 
 /// Shares with their 95 % intervals over the draws, both on log axes: one panel a finding, worst first, at most
-/// [`MOST_PANELS`]; the caption says how many are left out. [`csv`] has the numbers.
+/// [`MOST_PANELS`]; the caption says how many are left out. [`csv()`] has the numbers.
 pub fn svg(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
     let all = report.stopped.as_ref().map_or_else(Vec::new, |stopped| lines(report, stopped));
     let shown = &all[..all.len().min(MOST_PANELS)];
