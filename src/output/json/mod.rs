@@ -8,6 +8,7 @@
 mod check;
 mod flow;
 mod limit;
+mod part;
 mod parts;
 mod review;
 mod run;
@@ -16,6 +17,7 @@ mod sweep;
 
 pub use check::check;
 pub use limit::{limit, limit_map};
+pub use part::part;
 pub use review::review;
 pub use run::run;
 pub use states::states;
