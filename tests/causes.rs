@@ -238,6 +238,24 @@ fn of_many_delays_those_two_are_named_that_decide() {
     assert!(matches!(pull.untold, Some(Untold::FewFail | Untold::FewPass)) && pull.told.is_empty(), "{pull:?}");
 }
 
+/// Delays that differ from firing to firing stay as they were drawn, and that is said.
+#[test]
+fn firings_stay_as_they_were() {
+    let text = two_ways("[10, 20, 30]", "[10, 15, 30]", "") + "[sweep]\nvary = \"per-event\"\n";
+    let block = Block::read(&text, 500);
+    let review = block.review(1);
+    let needs = glitch(&review).needs.as_ref().unwrap();
+    assert!(needs.typical_shows_it() && needs.kept.firings && !needs.kept.exact, "{needs:?}");
+    let (subject, _) = causes(&review).next().unwrap();
+    block.is_minimal(needs, subject, &review.sweep, "firings");
+    let bundle = bundle::of_review(&block.scenario, &review);
+    let file = bundle.files.iter().find(|file| file.name.starts_with("case-glitch")).expect("a case");
+    let read = read_instance(std::str::from_utf8(&file.bytes).unwrap(), "case", &block.scenario).unwrap();
+    assert_eq!(read, *needs.case);
+    let page = stillgate::output::text::review(&block.scenario, &review, &Default::default());
+    assert!(page.contains("It takes delays of firings as in the failing case, else typical"), "{page}");
+}
+
 /// A gate that keeps what it wakes with: no delay has anything to do with it.
 #[test]
 fn a_toss_of_start_bits_is_decided_by_no_delay() {

@@ -21,6 +21,8 @@ mod limits;
 mod malformed;
 mod outcomes_agree;
 mod outside;
+mod parts;
+mod per_event;
 mod support;
 mod sweeps_agree;
 mod ties;

@@ -4,7 +4,8 @@ use std::process::ExitCode;
 
 use super::args::Sweeping;
 use super::common::{
-    Failure, INTERRUPTED, called, code, control, finish, folder, load, options, page, program, say, with_draws, write,
+    Failure, INTERRUPTED, called, code, control, finish, folder, load, options, overrides, page, program, say,
+    with_draws, write,
 };
 use crate::output::text::{self, Page};
 use crate::output::{bundle, json};
@@ -24,7 +25,8 @@ pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     if input.json {
         say(&json::review(&scenario, &review))?;
     } else if !input.quiet {
-        let (called, options, folder) = (called(input), options(&arguments.draws), folder.to_string_lossy());
+        let (called, options, folder) =
+            (called(input), options(&overrides(&arguments.draws)), folder.to_string_lossy());
         let page = Page { folder: &folder, ..page(called.as_deref(), &options) };
         say(&text::review(&scenario, &review, &page))?;
     }

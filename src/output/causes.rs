@@ -36,10 +36,13 @@ pub(super) fn stem(scenario: &Scenario, asked: &Asked, subject: &Subject, first:
 /// What is to be said of a reduced case beside its quantities: whole clauses.
 pub(super) fn remarks(needs: &Needs) -> Vec<String> {
     let mut all = Vec::new();
-    if needs.typical_shows_it() {
-        all.push("typical delays show it".to_string());
+    let kept = kept(needs).join(", ");
+    match (needs.typical_shows_it(), kept.is_empty()) {
+        (true, true) => all.push("typical delays show it".to_string()),
+        (true, false) => all.push(format!("it takes {kept} as in the failing case, else typical")),
+        (false, true) => {}
+        (false, false) => all.push(format!("{kept} as in the failing case")),
     }
-    all.extend(kept(needs).into_iter().map(|what| format!("{what} as in the failing case")));
     if let Some(cut) = needs.cut {
         let so_far = if needs.minimal { "fewer may do" } else { "not reduced to the end" };
         all.push(format!("{so_far}: {}", words::cut(cut)));
@@ -50,7 +53,12 @@ pub(super) fn remarks(needs: &Needs) -> Vec<String> {
 /// What of the failing case was kept that typical has otherwise.
 pub(super) fn kept(needs: &Needs) -> Vec<&'static str> {
     let kept = needs.kept;
-    let all = [(kept.start, "start bits"), (kept.bounces, "bounces"), (kept.exact, "delays without a range")];
+    let all = [
+        (kept.start, "start bits"),
+        (kept.bounces, "bounces"),
+        (kept.firings, "delays of firings"),
+        (kept.exact, "delays without a range"),
+    ];
     all.into_iter().filter(|it| it.0).map(|it| it.1).collect()
 }
 

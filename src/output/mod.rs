@@ -8,6 +8,7 @@ mod assumptions;
 pub mod bundle;
 mod causes;
 pub mod charts;
+pub mod convergence;
 pub mod flow_map;
 pub mod flow_tables;
 mod flow_words;

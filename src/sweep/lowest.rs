@@ -32,6 +32,13 @@ impl Lowest {
         other.0.iter().for_each(|number| self.add(*number));
     }
 
+    /// Could these be the lowest of `count` numbers below `end`?
+    pub(super) fn fits(&self, count: u64, end: u64) -> bool {
+        self.0.len() as u64 == count.min(KEPT as u64)
+            && self.0.is_sorted_by(|a, b| a < b)
+            && self.0.last().is_none_or(|last| *last < end)
+    }
+
     /// The numbers, ascending.
     pub fn numbers(&self) -> &[u64] {
         &self.0

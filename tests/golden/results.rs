@@ -11,8 +11,8 @@ use stillgate::review::{
 };
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{
-    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass, WindowReport,
-    Worst,
+    AtMost, Boards, Finding, Outcome, Ranges, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass,
+    WindowReport, Worst,
 };
 use stillgate::time::Span;
 
@@ -168,6 +168,8 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
         unseen: Some(UnseenMass { moment: 3, once: 120, of: 10_000, estimate: 0.012, upper: 0.112 }),
         unseen_untold: 0,
         failing: BTreeMap::new(),
+        missing: Ranges::default(),
+        stopped: None,
         conditions: Vec::new(),
         ties: TiesSought { done: true, ..TiesSought::default() },
     }
@@ -251,7 +253,7 @@ fn causes(scenario: &Scenario, findings: usize) -> Vec<Option<Why>> {
         needs: Some(needs.clone()),
         pull: Pulls { told, more: 3, samples: (9, 1_024), untold: None },
     };
-    let kept = Kept { start: true, bounces: false, exact: false };
+    let kept = Kept { start: true, bounces: false, firings: false, exact: false };
     let away = vec![least];
     let cut = Why {
         race: None,
@@ -275,6 +277,8 @@ pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
         unseen: None,
         unseen_untold: 0,
         failing: BTreeMap::new(),
+        missing: Ranges::default(),
+        stopped: None,
         conditions: Vec::new(),
         ties: TiesSought::default(),
     }

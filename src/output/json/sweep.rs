@@ -2,6 +2,7 @@
 
 use serde::Serialize;
 
+use super::part::ends;
 use super::parts::{Departed, Exact, Level, Lines, Measured, Object, OneLine, state};
 use super::why;
 use crate::findings::Asked;
@@ -17,9 +18,14 @@ pub(super) struct Sweep<'a> {
     format: Option<u32>,
     samples: u64,
     samples_asked: u64,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    missing: Option<OneLine<Vec<[u64; 2]>>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    until: Option<OneLine<Until>>,
     seed: u64,
     tries: u64,
     draw: &'static str,
+    vary: &'static str,
     windows: Vec<Window<'a>>,
     rules: Vec<Rule<'a>>,
     findings: Vec<Found<'a>>,
@@ -123,6 +129,16 @@ struct Boards {
     worst_share: f64,
 }
 
+/// A sweep that was to stop when sure; the intervals allow for all its looks.
+#[derive(Serialize)]
+struct Until {
+    width: f64,
+    widest: Option<f64>,
+    sure: bool,
+    looks: u64,
+    looked: u64,
+}
+
 /// The sweep under one condition.
 #[derive(Serialize)]
 struct Condition<'a> {
@@ -181,9 +197,20 @@ impl<'a> Sweep<'a> {
             format,
             samples: report.samples,
             samples_asked: report.plan.samples,
+            missing: (!report.missing.is_empty()).then(|| ends(&report.missing)),
+            until: report.stopped.as_ref().map(|it| {
+                OneLine(Until {
+                    width: it.curve.until.width(),
+                    widest: it.widest.map(six),
+                    sure: it.curve.sure,
+                    looks: it.looks,
+                    looked: it.curve.looked,
+                })
+            }),
             seed: report.plan.seed,
             tries: report.plan.tries,
             draw: report.plan.draw.name(),
+            vary: report.plan.vary.name(),
             windows: report.windows.iter().map(|it| window(scenario, it)).collect(),
             rules: report.rules.iter().map(|it| rule(scenario, it)).collect(),
             findings: report.findings.iter().map(|it| finding(scenario, asked, it)).collect(),

@@ -6,7 +6,7 @@ use super::why::{Causes, Told};
 use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
 use crate::output::words;
 use crate::review::{departure_words, without_draws};
-use crate::scenario::Scenario;
+use crate::scenario::{Scenario, Vary};
 use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
 /// Most findings told in full.
@@ -61,7 +61,7 @@ pub(super) fn worst(kind: Kind, worst: Worst) -> String {
 }
 
 /// How often, how surely, how bad.
-fn figures(finding: &Finding) -> String {
+fn figures(scenario: &Scenario, finding: &Finding) -> String {
     let mut text = match finding.case.as_deref().filter(|_| finding.count == 0) {
         Some(case) => format!("in no draw, {}", without_draws(case, finding.tie)),
         None => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
@@ -82,6 +82,9 @@ fn figures(finding: &Finding) -> String {
         text += &format!(", in {mean} of their tries, the worst in {worst}");
         text += match boards.cause() {
             Cause::Parts => ": it lies in their parts",
+            Cause::Moment if scenario.plan.vary == Vary::PerEvent => {
+                ": it lies in the moment of the step or in the firings"
+            }
             Cause::Moment => ": it lies in the moment of the step",
             Cause::Mixed => "",
         };
@@ -148,13 +151,13 @@ impl Group<'_> {
         about(scenario, asked, &self.worst.subject) + &also
     }
 
-    fn figures(&self) -> String {
+    fn figures(&self, scenario: &Scenario) -> String {
         match self.whole.filter(|_| self.more_steps > 0) {
             Some(rule) => {
                 let (broken, judged) = (words::count(rule.broken), words::count(rule.judged));
-                format!("{broken} of {judged} draws over all steps; at this step {}", figures(self.worst))
+                format!("{broken} of {judged} draws over all steps; at this step {}", figures(scenario, self.worst))
             }
-            None => figures(self.worst),
+            None => figures(scenario, self.worst),
         }
     }
 }
@@ -176,7 +179,7 @@ pub(super) fn findings(
             paper.hang(2, 4, Tone::Bad, &format!("{} {}", i + 1, group.about(scenario, asked)));
             let cause = causes.as_mut().map(|causes| causes.next(page, scenario, finding));
             let beside = cause.as_ref().map_or_else(String::new, Told::beside);
-            paper.say(4, Tone::Plain, &(group.figures() + &beside));
+            paper.say(4, Tone::Plain, &(group.figures(scenario) + &beside));
             if let Some(against) = &finding.against {
                 let first = if finding.count > 1 { "the first: " } else { "" };
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
@@ -193,7 +196,7 @@ pub(super) fn findings(
     if !listed.is_empty() {
         paper.heading("Also seen, breaks no rule");
         for group in listed.iter().take(LISTED) {
-            paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures()));
+            paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures(scenario)));
         }
         super::more(paper, listed.len().saturating_sub(LISTED), "findings.csv");
     }

@@ -6,7 +6,7 @@ use super::why::Causes;
 use super::{conditions, findings, flow, notes, rules, steps, sure, ties};
 use crate::output::words;
 use crate::review::{Call, Review, Verdict};
-use crate::scenario::Scenario;
+use crate::scenario::{Scenario, Vary};
 use crate::sweep::SweepReport;
 
 /// Most reasons of the verdict.
@@ -57,9 +57,17 @@ pub(super) fn body(
     causes: Option<&mut Causes<'_>>,
 ) {
     paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
-    if report.samples < report.plan.samples {
+    if report.samples < report.plan.samples && !report.stopped.as_ref().is_some_and(|it| it.curve.sure) {
         let (done, wanted) = (words::count(report.samples), words::count(report.plan.samples));
-        paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run."));
+        let missing = match report.missing.is_empty() {
+            true => String::new(),
+            false => format!(" Missing: {}.", report.missing.words()),
+        };
+        paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run.{missing}"));
+    }
+    for condition in report.conditions.iter().filter(|it| it.sweep.missing != report.missing) {
+        let (name, missing) = (&condition.condition.name, condition.sweep.missing.words());
+        paper.say(2, Tone::Unsure, &format!("Under condition {name}: missing {missing}."));
     }
     steps::steps(paper, scenario, report);
     findings::findings(paper, page, scenario, asked, report, causes);
@@ -79,6 +87,9 @@ pub(super) fn draws(report: &SweepReport) -> String {
         report.plan.draw.name(),
         report.plan.seed
     );
+    if report.plan.vary == Vary::PerEvent {
+        text += ", every firing anew";
+    }
     if report.plan.tries > 1 {
         text += &format!(", {} tries a board", words::count(report.plan.tries));
     }

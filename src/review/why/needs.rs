@@ -50,6 +50,8 @@ pub struct Kept {
     pub start: bool,
     /// Its bounces, likewise.
     pub bounces: bool,
+    /// The delays of its firings, where they differ from firing to firing.
+    pub firings: bool,
     /// Something that the scenario gives no range.
     pub exact: bool,
 }
@@ -116,6 +118,7 @@ pub(super) fn of(
     let kept = Kept {
         start: case.start != typical.start,
         bounces: case.bounces != typical.bounces,
+        firings: case.firings != typical.firings,
         exact: exact_moved(&case, &typical, &away),
     };
     Ok(Some(Needs {
@@ -132,6 +135,7 @@ pub(super) fn of(
 fn exact_moved(case: &Instance, typical: &Instance, away: &[(u64, Away)]) -> bool {
     let mut rest = case.clone();
     away.iter().for_each(|(_, it)| rest.set(&it.quantity, it.typical));
-    (rest.start, rest.bounces) = (typical.start.clone(), typical.bounces.clone());
+    (rest.start, rest.bounces, rest.firings) =
+        (typical.start.clone(), typical.bounces.clone(), typical.firings.clone());
     rest != *typical
 }

@@ -63,7 +63,7 @@ pub enum Untold {
     NothingDrawn,
     /// There are too many quantities.
     TooMany,
-    /// The sweep was interrupted: which samples do not fail is not known.
+    /// The sweep was interrupted or lacks parts: which samples do not fail is not known.
     Interrupted,
 }
 
@@ -75,7 +75,7 @@ impl Untold {
             Untold::FewPass => "fewer than 10 passing draws to compare",
             Untold::NothingDrawn => "nothing is drawn",
             Untold::TooMany => "too many quantities to compare",
-            Untold::Interrupted => "interrupted",
+            Untold::Interrupted => "some draws are missing",
         }
     }
 }
@@ -97,7 +97,7 @@ pub(super) fn of(scenario: &Scenario, sweep: &SweepReport, finding: &Finding, st
     if count == 0 {
         return none(Untold::NothingDrawn);
     }
-    if sweep.samples < sweep.plan.samples {
+    if !sweep.missing.is_empty() {
         return none(Untold::Interrupted);
     }
     let most = (VALUES / count).min(FAILING + PASSING);

@@ -10,7 +10,7 @@ use crate::instance::{Instance, Sampler, Which};
 use crate::scenario::Scenario;
 use crate::sweep::{Fork, SweepReport};
 
-/// Samples run again, at most; and net changes and arrivals in them, roughly.
+/// Samples run again, at most.
 const SAMPLES: u64 = 2048;
 
 /// Samples that stray, by moment.
@@ -32,7 +32,7 @@ impl Strays {
         let mut sampler = Sampler::new(scenario);
         let mut instance = Instance::of(scenario, &Which::Typ);
         let mut looked_at = 0;
-        while looked_at < SAMPLES.min(sweep.plan.samples) && !control.cancelled() {
+        while looked_at < SAMPLES.min(sweep.samples) && !control.cancelled() {
             sampler.fill(looked_at, &mut instance);
             judge.sink.sample = looked_at;
             if !machine.run(&instance, control, &mut judge) {
