@@ -79,6 +79,7 @@ pub mod output;
 pub mod reader;
 pub mod review;
 pub mod scenario;
+pub mod search;
 pub mod statics;
 pub mod sweep;
 pub mod time;

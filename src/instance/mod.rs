@@ -5,10 +5,12 @@
 
 mod bounces;
 mod groups;
+mod numbers;
 mod quantity;
 mod sampler;
 mod strata;
 
+pub use numbers::{Cases, Numbers};
 pub use quantity::{Quantities, Quantity, Target};
 pub use sampler::{LAYOUT, Sampler};
 

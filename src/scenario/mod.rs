@@ -103,11 +103,18 @@ pub struct Plan {
     pub tries: u64,
     /// How delays spread over their ranges.
     pub draw: Marginal,
+    /// Runs that a directed search may take for each question; 0: none.
+    pub search: u64,
+}
+
+impl Plan {
+    /// Least number of runs that a directed search of one question needs to try its starts and look at what it finds.
+    pub const LEAST_SEARCH: u64 = 50;
 }
 
 impl Default for Plan {
     fn default() -> Plan {
-        Plan { samples: 10_000, seed: 1, tries: 1, draw: Marginal::Uniform }
+        Plan { samples: 10_000, seed: 1, tries: 1, draw: Marginal::Uniform, search: 1_000 }
     }
 }
 

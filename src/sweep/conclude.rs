@@ -85,10 +85,7 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
             findings.push(judging.finding(kind, &fact(strays, false), race.of));
         }
     }
-    findings.sort_by(|a, b| {
-        let key = |f: &Finding| (!f.breaks_rule, f.subject.kind, std::cmp::Reverse(f.count), f.subject);
-        key(a).cmp(&key(b))
-    });
+    worst_first(&mut findings);
     for rule in &mut rules {
         rule.at_most = judging.rule_at_most(rule);
     }
@@ -105,6 +102,20 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
         unseen_untold,
         conditions: Vec::new(),
     }
+}
+
+/// Findings in the order of every list: rule breakers before others, by kind, by count.
+pub(crate) fn worst_first(findings: &mut [Finding]) {
+    findings.sort_by(|a, b| {
+        let key = |f: &Finding| (!f.breaks_rule, f.subject.kind, std::cmp::Reverse(f.count), f.subject);
+        key(a).cmp(&key(b))
+    });
+}
+
+/// Do these outcomes from one state break the rule on critical races at a moment?
+pub(crate) fn race_breaks(scenario: &Scenario, moment: u32, outcomes: &[&State]) -> bool {
+    let forbidden = scenario.rules.critical_race == Permission::Forbidden;
+    forbidden && outcomes.len() > 1 && !each_has_its_own(outcomes, &expected(scenario, moment))
 }
 
 /// What the samples of one moment did from each state before, beyond the commonest.

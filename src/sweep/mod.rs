@@ -10,6 +10,7 @@ mod tally;
 mod unseen;
 
 pub use conclude::conclude;
+pub(crate) use conclude::{race_breaks, worst_first};
 pub use report::{
     AtMost, Boards, Cause, ConditionReport, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport,
     Worst,
