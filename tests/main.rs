@@ -20,6 +20,7 @@ mod malformed;
 mod outcomes_agree;
 mod outside;
 mod support;
+mod searches;
 mod sweeps_agree;
 mod verdicts;
 mod views_agree;

@@ -25,8 +25,9 @@ use crate::findings::{Asked, Kind, RuleKey};
 use crate::flow::FlowError;
 use crate::instance::Which;
 use crate::scenario::Scenario;
+use crate::search::{SearchReport, search};
 use crate::statics;
-use crate::sweep::{ConditionReport, SweepReport, conclude, run_samples};
+use crate::sweep::{ConditionReport, SweepReport, conclude, run_samples, worst_first};
 
 /// Failing cases that a review shows as pictures, worst findings first.
 const SHOWN: usize = 12;
@@ -110,22 +111,51 @@ pub fn review(
     let states = states(scenario, control)?;
     let typical = run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?;
     contained::run(scenario, "the typical run", &typical.trace, control)?;
-    let sweep = sweep(scenario, program, &asked, threads, control)?;
+    let mut sweep = sweep(scenario, program, &asked, threads, control)?;
+    let search = search_worst(scenario, program, &asked, &mut sweep, threads, control)?;
     let mut shown = Vec::new();
     for index in to_show(&asked, &sweep) {
         let finding = &sweep.findings[index];
-        let Some(sample) = finding.worst_sample.or(finding.sample) else { continue };
-        let Some(run) = run_one(scenario, program, &asked, Which::Sample(sample), control) else { continue };
+        let sample = finding.worst_sample.or(finding.sample).map(Which::Sample);
+        let Some(which) = sample.or_else(|| finding.case.as_deref().cloned()) else { continue };
+        let case = which.words();
+        let Some(run) = run_one(scenario, program, &asked, which, control) else { continue };
         let race = matches!(finding.subject.kind, Kind::CriticalRace | Kind::NonCriticalRace);
         if !race && !run.facts.iter().any(|fact| fact.subject == finding.subject) {
             let kind = finding.subject.kind.word();
-            return Err(ReviewError::Contradiction(format!("sample {sample} run alone does not show its {kind}")));
+            return Err(ReviewError::Contradiction(format!("{case} run alone does not show its {kind}")));
         }
         shown.push((index, run));
     }
     let verdict = with_typical(scenario, &sweep, &typical, verdict(scenario, &sweep));
     let why = vec![None; sweep.findings.len()];
-    Ok(Review { asked, states, typical: Some(typical), sweep, shown, why, verdict })
+    Ok(Review { asked, states, typical: Some(typical), sweep, search, shown, why, verdict })
+}
+
+/// Searches for the worst case of what no draw broke, if the plan says so, and adds what it breaks to the findings. Each
+/// such case is checked against the delay-free view as the draws are.
+fn search_worst(
+    scenario: &Scenario,
+    program: &Program,
+    asked: &Asked,
+    sweep: &mut SweepReport,
+    threads: usize,
+    control: &Control,
+) -> Result<Option<SearchReport>, ReviewError> {
+    if scenario.plan.search == 0 {
+        return Ok(None);
+    }
+    let report = search(scenario, program, asked, sweep, threads, control);
+    let findings = report.findings(sweep);
+    for finding in &findings {
+        let Some(case) = finding.case.as_deref().cloned() else { continue };
+        if let Some(run) = run_one(scenario, program, asked, case, &Control::default()) {
+            contained::run(scenario, "a case of the directed search", &run.trace, &Control::default())?;
+        }
+    }
+    sweep.findings.extend(findings);
+    worst_first(&mut sweep.findings);
+    Ok(Some(report))
 }
 
 /// What makes findings alike: kind, rule and which of several, net.

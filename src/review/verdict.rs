@@ -8,6 +8,7 @@ use super::report::{Call, RunReport, Verdict};
 use crate::circuit::NetId;
 use crate::delay::Marginal;
 use crate::findings::{Against, Fact, Kind, Question, Reason, RuleKey, Subject};
+use crate::instance::Which;
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, SweepReport};
 
@@ -129,6 +130,9 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
         rule.map(|rule| &rule.question),
         finding.against.as_ref().map(|it| (it, finding.count > 1)),
     );
+    if searched(finding) {
+        return format!("{what} in no draw of {}, but met by directed search", grouped(finding.of));
+    }
     // a rule for the whole run may break after several steps: its share is that of the rule
     match rule.filter(|rule| rule.question.moment.is_none() && rule.broken > finding.count) {
         Some(rule) => {
@@ -136,6 +140,11 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
         }
         None => format!("{what} in {} of {} draws", grouped(finding.count), grouped(finding.of)),
     }
+}
+
+/// Did only the directed search meet it?
+fn searched(finding: &Finding) -> bool {
+    finding.count == 0 && matches!(finding.case.as_deref(), Some(Which::Given(_)))
 }
 
 /// What was found, where, after which step.

@@ -10,6 +10,7 @@ mod flow;
 mod parts;
 mod review;
 mod run;
+mod search;
 mod states;
 mod sweep;
 

@@ -2,9 +2,12 @@
 
 use serde::Serialize;
 
+use super::parts::Lines;
 use super::run::Run;
+use super::search::{Question, search};
 use super::states::States;
 use super::sweep::Sweep;
+use crate::output::search::{case_files, file_of};
 use crate::review::Review;
 use crate::scenario::Scenario;
 
@@ -21,12 +24,18 @@ struct Whole<'a> {
     states: States<'a>,
     typical: Option<Run<'a>>,
     sweep: Sweep<'a>,
+    search: Option<Lines<Question<'a>>>,
     proof: Option<()>,
 }
 
 /// The document of `review`. `states`, `typical` and `sweep` have the keys of their own documents, but for `format`.
 pub fn review(scenario: &Scenario, review: &Review) -> String {
     let asked = &review.asked;
+    let files = case_files(review);
+    let mut sweep = Sweep::of(scenario, asked, &review.sweep, None);
+    for (told, finding) in sweep.findings.iter_mut().zip(&review.sweep.findings) {
+        told.case = finding.case.as_ref().and_then(|_| file_of(&files, finding.subject.question)).map(String::from);
+    }
     super::document(&Whole {
         format: super::FORMAT,
         title: &scenario.title,
@@ -38,7 +47,8 @@ pub fn review(scenario: &Scenario, review: &Review) -> String {
         not_analysed: &scenario.not_analysed,
         states: States::of(scenario, &review.states, None),
         typical: review.typical.as_ref().map(|run| Run::of(scenario, asked, run, None)),
-        sweep: Sweep::of(scenario, asked, &review.sweep, None),
+        sweep,
+        search: search(scenario, review, &files),
         proof: None,
     })
 }

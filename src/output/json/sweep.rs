@@ -20,7 +20,7 @@ pub(super) struct Sweep<'a> {
     draw: &'static str,
     windows: Vec<Window<'a>>,
     rules: Vec<Rule<'a>>,
-    findings: Vec<Found<'a>>,
+    pub(super) findings: Vec<Found<'a>>,
     failures_at_most: Option<OneLine<AtMost>>,
     unseen_mass: Option<OneLine<Unseen<'a>>>,
     unseen_untold: u64,
@@ -81,7 +81,7 @@ struct Rule<'a> {
 }
 
 #[derive(Serialize)]
-struct Found<'a> {
+pub(super) struct Found<'a> {
     #[serde(skip_serializing_if = "Option::is_none")]
     condition: Option<&'a str>,
     kind: &'static str,
@@ -100,6 +100,9 @@ struct Found<'a> {
     tie: Option<&'static str>,
     sample: Option<u64>,
     worst_sample: Option<u64>,
+    /// The file of the case that shows it where no draw does.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub(super) case: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
 }
@@ -275,6 +278,7 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         tie: finding.tie.map(words::tie),
         sample: finding.sample,
         worst_sample: finding.worst_sample,
+        case: None,
         reference: finding.against.as_ref().map(|it| Departed::of(scenario, it)),
     }
 }

@@ -2,7 +2,10 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
+use super::search::Searching;
 use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
+use crate::instance::Which;
+use crate::output::search::file_of;
 use crate::output::words;
 use crate::review::departure_words;
 use crate::scenario::Scenario;
@@ -61,7 +64,9 @@ pub(super) fn worst(kind: Kind, worst: Worst) -> String {
 
 /// How often, how surely, how bad.
 fn figures(finding: &Finding) -> String {
+    let searched = matches!(finding.case.as_deref(), Some(Which::Given(_)));
     let mut text = match (finding.tie, finding.count) {
+        (_, 0) if searched => format!("in no draw of {}, but met by directed search", words::count(finding.of)),
         (Some(Tie::Appears), 0) => "in no draw; only when delays are moved by single femtoseconds".to_string(),
         _ => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
     };
@@ -159,7 +164,14 @@ impl Group<'_> {
 }
 
 /// Findings that break a rule in full, then those that break none.
-pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, asked: &Asked, report: &SweepReport) {
+pub(super) fn findings(
+    paper: &mut Paper,
+    page: &Page<'_>,
+    scenario: &Scenario,
+    asked: &Asked,
+    report: &SweepReport,
+    searching: Option<Searching<'_>>,
+) {
     let (broken, listed) = (groups(asked, report, true), groups(asked, report, false));
     if !broken.is_empty() {
         paper.heading("Findings that break a rule, worst first");
@@ -173,6 +185,10 @@ pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, 
             }
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
                 paper.whole(4, &page.replay(sample, None));
+            } else if let (Some(_), Some(searching)) = (&finding.case, searching)
+                && let Some(file) = file_of(searching.files, finding.subject.question)
+            {
+                paper.whole(4, &page.replay_file(file));
             }
         }
         super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");
