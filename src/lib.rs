@@ -56,7 +56,7 @@
 //! # The floors, lowest first
 //!
 //! [`time`], [`logic`], [`control`] · [`circuit`] · [`delay`] · [`scenario`] · [`instance`] · [`statics`] · [`flow`] · [`engine`] ·
-//! [`findings`] · [`sweep`] · [`review`] · [`reader`], [`output`] · [`cli`]. A module uses only floors below its own.
+//! [`findings`] · [`sweep`] · [`search`] · [`review`] · [`reader`], [`output`] · [`cli`]. A module uses only floors below its own.
 //!
 //! # What is not modelled
 //!

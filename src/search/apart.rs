@@ -146,8 +146,8 @@ mod tests {
         assert_eq!(least(&[&[(10, 20)], &[(20, 30)]]), Some(0), "one ends when the other begins");
         assert_eq!(least(&[&[(10, 20)], &[(15, 17)]]), Some(0), "it shows");
         assert_eq!(least(&[&[(10, 20)], &[]]), None, "one never holds");
-        // the first two overlap from 15 to 20, the third is 5 away; with the first two 3 apart it is 3 + 5
-        assert_eq!(least(&[&[(10, 20)], &[(15, 30)], &[(35, end)]]), Some(15), "15 from the end of the first, 5 of the second");
-        assert_eq!(least(&[&[(10, 32)], &[(15, 30)], &[(35, end)]]), Some(8), "3 and 5");
+        // at 30: the first ended 10 before, the third comes 5 later
+        assert_eq!(least(&[&[(10, 20)], &[(15, 30)], &[(35, end)]]), Some(15));
+        assert_eq!(least(&[&[(10, 32)], &[(15, 30)], &[(35, end)]]), Some(5), "2 after the second at 32, and 3 before the third");
     }
 }

@@ -1,8 +1,9 @@
 //! Is a breach more than a tie of exactly equal times?
 //!
 //! A search walks to where paths are exactly equal, as at corners, and there the model does what no part does. So a breach
-//! counts only if it shows in one of eight cases in which every quantity is moved by some femtoseconds, each by its own; or,
-//! of a rule with a number, if it only was broken by less than they were moved.
+//! counts only if it shows in one of eight cases in which every quantity is moved a little, each by its own: by some
+//! femtoseconds, and by up to a thousandth of its range, since gates that are equal to a femtosecond still oscillate for long.
+//! Of a rule with a number it also counts if it was only broken by less than they were moved.
 
 use rand::RngExt;
 
@@ -13,8 +14,10 @@ use crate::time::Span;
 
 /// Cases tried.
 pub(super) const MOVED: u64 = 8;
-/// Most that a quantity is moved by.
+/// Femtoseconds that a quantity is moved by at least where its range is short, at most.
 const FARTHEST: u64 = 1_000;
+/// A range is moved over by up to this part of it: 2^-10.
+const PART: u32 = 10;
 
 /// What became of a breach.
 pub(super) enum Firm {
@@ -27,7 +30,7 @@ pub(super) enum Firm {
 }
 
 impl Bench<'_> {
-    /// Tries a case that broke the question once more with its times moved a little.
+    /// Tries a case that broke the question again, with its times moved a little.
     pub(super) fn confirm(&mut self, numbers: &Numbers, shown: Shown) -> Firm {
         if self.left() < MOVED {
             return Firm::Untold;
@@ -41,25 +44,23 @@ impl Bench<'_> {
         let (mut count, mut near) = (0, false);
         for _ in 0..MOVED {
             // of corners no case lies between: the tie is looked for beside them, and the corner is kept
-            let (other, seen) = match corners {
-                true => {
-                    let moved = self.beside(&instance, most);
-                    (numbers.clone(), self.try_case(&moved))
-                }
+            let (other, case) = match corners {
+                true => (numbers.clone(), self.beside(&instance, most)),
                 false => {
                     let moved = self.moved(numbers, most);
-                    let seen = self.try_numbers(&moved);
-                    (moved, seen)
+                    let case = self.case(&moved);
+                    (moved, case)
                 }
             };
-            let Some(seen) = seen else { return Firm::Untold };
+            let Some(seen) = self.try_case(&case) else { return Firm::Untold };
             if seen.broken {
                 count += 1;
                 stands.get_or_insert((other, if corners { shown } else { seen }));
             } else if let (Some(a), Some(b)) = (shown.slack, seen.slack) {
-                // each event waits for no more delays than there are transitions; a few times all of them is room enough
-                let room = most.saturating_mul(16 * (self.movable.len() as u64 + 1));
-                near |= a.abs_diff(b) <= room;
+                // a path may go through a gate several times
+                let quantities = self.cases.quantities().iter();
+                let moved = quantities.map(|it| instance.get(it).fs().abs_diff(case.get(it).fs()));
+                near |= a.abs_diff(b) <= moved.fold(0, u64::saturating_add).saturating_mul(16);
             }
         }
         match stands {
@@ -80,7 +81,8 @@ impl Bench<'_> {
                 None => 1 << 40,
             };
             let by = (u128::from(self.rng.random_range(1..=most)) << 64) / u128::from(width);
-            let by = u64::try_from(by).unwrap_or(u64::MAX).max(1);
+            let part = self.rng.random_range(0..=u64::MAX >> PART);
+            let by = u64::try_from(by).unwrap_or(u64::MAX).max(part).max(1);
             let number = numbers.get(i);
             let up = if self.rng.random() { number.checked_add(by).is_some() } else { number < by };
             moved.set(i, if up { number.saturating_add(by) } else { number.saturating_sub(by) });
@@ -93,9 +95,10 @@ impl Bench<'_> {
         let mut moved = instance.clone();
         for i in 0..self.cases.quantities().len() {
             let quantity = self.cases.quantities()[i];
+            let (least, greatest) = (quantity.range.min, quantity.range.max);
+            let most = most.max((greatest - least).fs() >> PART);
             let by = Span::from_fs(self.rng.random_range(1..=most));
             let span = instance.get(&quantity);
-            let (least, greatest) = (quantity.range.min, quantity.range.max);
             let up = if span + by > greatest { false } else { self.rng.random() || span < least + by };
             let span = if up { span + by } else { span.max(least + by) - by };
             moved.set(&quantity, span.clamp(least, greatest));
