@@ -278,7 +278,11 @@ samples = 20
         let Some(least) = least[it.question as usize] else { continue };
         let margin = it.margin.or(it.start_margin).unwrap();
         // the last step is less than a ten-thousandth of a range
-        assert!(margin <= i128::from(least) + 2_000_000, "{:?}: {it:?}, {least}", asked.questions[it.question as usize]);
+        assert!(
+            margin <= i128::from(least) + 2_000_000,
+            "{:?}: {it:?}, {least}",
+            asked.questions[it.question as usize]
+        );
         // what the grid misses by lying between its points is less than one of its steps
         assert!(margin >= i128::from(least) - i128::from(ns(2).fs()), "{it:?}, {least}");
         compared += 1;

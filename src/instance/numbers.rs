@@ -193,7 +193,13 @@ draw = "DRAW"
 
     /// A file of the table above with a group and a draw.
     fn scenarios() -> Vec<Scenario> {
-        let groups = ["", "tracking = 0.7", "tracking = 1", "scale = [0.5, 1.5]\nmismatch = 0.1", "scale = [1.2, 1.5]\nmismatch = 0"];
+        let groups = [
+            "",
+            "tracking = 0.7",
+            "tracking = 1",
+            "scale = [0.5, 1.5]\nmismatch = 0.1",
+            "scale = [1.2, 1.5]\nmismatch = 0",
+        ];
         let mut all = Vec::new();
         for group in groups {
             for draw in Marginal::ALL {

@@ -15,8 +15,8 @@ pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, comp
 pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
-pub use why::{Away, Needs, Pull, Why};
 pub use verdict::{grouped, verdict, with_typical};
+pub use why::{Away, Needs, Pull, Why};
 
 use crate::circuit::NetId;
 use crate::control::Control;

@@ -148,6 +148,10 @@ mod tests {
         assert_eq!(least(&[&[(10, 20)], &[]]), None, "one never holds");
         // at 30: the first ended 10 before, the third comes 5 later
         assert_eq!(least(&[&[(10, 20)], &[(15, 30)], &[(35, end)]]), Some(15));
-        assert_eq!(least(&[&[(10, 32)], &[(15, 30)], &[(35, end)]]), Some(5), "2 after the second at 32, and 3 before the third");
+        assert_eq!(
+            least(&[&[(10, 32)], &[(15, 30)], &[(35, end)]]),
+            Some(5),
+            "2 after the second at 32, and 3 before the third"
+        );
     }
 }

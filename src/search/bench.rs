@@ -3,10 +3,10 @@
 use rand::SeedableRng;
 use rand_chacha::ChaCha8Rng;
 
-use super::{Breach, Stray};
 use super::apart::{Apart, FromRest};
 use super::heard::Heard;
 use super::meetings::{Meeting, Meetings};
+use super::{Breach, Stray};
 use crate::circuit::{GateId, NetId, NetSet, WireId};
 use crate::control::Control;
 use crate::engine::{Closing, Machine, Observer, Opening, Program};

@@ -100,8 +100,7 @@ pub fn search(
     let planned = sweep.samples + budget * open.len() as u64;
     let results = Mutex::new(Vec::new());
     let work = || {
-        loop {
-            let Some(q) = open.get(next.fetch_add(1, Ordering::Relaxed)) else { break };
+        while let Some(q) = open.get(next.fetch_add(1, Ordering::Relaxed)) {
             let result = job::search_one(&shared, *q as u32);
             control.report(sweep.samples + done.fetch_add(budget, Ordering::Relaxed) + budget, planned);
             results.lock().unwrap_or_else(std::sync::PoisonError::into_inner).push(result);
