@@ -1,5 +1,7 @@
 //! One case tried: made of its numbers, run, judged, counted.
 
+use std::collections::BTreeSet;
+
 use rand::SeedableRng;
 use rand_chacha::ChaCha8Rng;
 
@@ -86,7 +88,7 @@ pub(super) struct Bench<'a> {
     machine: Machine<()>,
     observers: (Judge<Heard>, Guides),
     /// Of a critical race: from which state the moment led to which.
-    passages: Vec<(State, Vec<State>)>,
+    passages: Vec<(State, BTreeSet<State>)>,
     pub strays: Vec<Stray>,
 }
 
@@ -196,18 +198,17 @@ impl<'a> Bench<'a> {
     fn strays_from_its_like(&mut self) -> bool {
         let Some((before, after)) = self.observers.0.sink.passage.take() else { return false };
         let Some((_, outcomes)) = self.passages.iter_mut().find(|it| it.0 == before) else {
-            self.passages.push((before, vec![after]));
+            self.passages.push((before, BTreeSet::from([after])));
             return false;
         };
         if outcomes.contains(&after) {
             return false;
         }
-        outcomes.push(after);
-        let all: Vec<&State> = outcomes.iter().collect();
+        let all: BTreeSet<&State> = outcomes.iter().chain([&after]).collect();
         let breaks = race_breaks(self.shared.scenario, self.question.moment.unwrap_or(0), &all);
-        if breaks {
-            // another case that leads there strays as well
-            outcomes.pop();
+        // where it breaks the rule, another case that leads there strays as well
+        if !breaks {
+            outcomes.insert(after);
         }
         breaks
     }

@@ -2,7 +2,9 @@
 
 use std::collections::{BTreeMap, BTreeSet};
 
-use super::report::{AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, WindowReport, Worst};
+use super::report::{
+    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, TiesSought, WindowReport, Worst,
+};
 use super::seen::Count;
 use super::spread::{self, Spread};
 use super::stats::{clopper_pearson, none_in};
@@ -101,21 +103,23 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
         unseen,
         unseen_untold,
         conditions: Vec::new(),
+        ties: TiesSought::default(),
     }
 }
 
-/// Findings in the order of every list: rule breakers before others, by kind, by count.
-pub(crate) fn worst_first(findings: &mut [Finding]) {
+/// Puts findings in the order of a report: rule breakers before others, by kind, by count.
+pub fn worst_first(findings: &mut [Finding]) {
     findings.sort_by(|a, b| {
         let key = |f: &Finding| (!f.breaks_rule, f.subject.kind, std::cmp::Reverse(f.count), f.subject);
         key(a).cmp(&key(b))
     });
 }
 
-/// Do these outcomes from one state break the rule on critical races at a moment?
-pub(crate) fn race_breaks(scenario: &Scenario, moment: u32, outcomes: &[&State]) -> bool {
+/// Would a race that leads from one state at rest to these settled states, without X, break a rule at this moment?
+pub fn race_breaks(scenario: &Scenario, moment: u32, outcomes: &BTreeSet<&State>) -> bool {
+    let states: Vec<&State> = outcomes.iter().copied().collect();
     let forbidden = scenario.rules.critical_race == Permission::Forbidden;
-    forbidden && outcomes.len() > 1 && !each_has_its_own(outcomes, &expected(scenario, moment))
+    states.len() > 1 && forbidden && !each_has_its_own(&states, &expected(scenario, moment))
 }
 
 /// What the samples of one moment did from each state before, beyond the commonest.

@@ -7,6 +7,7 @@ use super::run::Run;
 use super::search::{Question, search};
 use super::states::States;
 use super::sweep::Sweep;
+use crate::instance::Which;
 use crate::output::search::{case_files, file_of};
 use crate::review::Review;
 use crate::scenario::Scenario;
@@ -34,7 +35,9 @@ pub fn review(scenario: &Scenario, review: &Review) -> String {
     let files = case_files(review);
     let mut sweep = Sweep::of(scenario, asked, &review.sweep, None);
     for (told, finding) in sweep.findings.iter_mut().zip(&review.sweep.findings) {
-        told.case = finding.case.as_ref().and_then(|_| file_of(&files, finding.subject.question)).map(String::from);
+        if let Some(Which::Given(_)) = finding.case.as_deref() {
+            told.case = file_of(&files, finding.subject.question).map(String::from);
+        }
     }
     super::document(&Whole {
         format: super::FORMAT,

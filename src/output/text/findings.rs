@@ -7,7 +7,7 @@ use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
 use crate::instance::Which;
 use crate::output::search::file_of;
 use crate::output::words;
-use crate::review::departure_words;
+use crate::review::{departure_words, without_draws};
 use crate::scenario::Scenario;
 use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
@@ -17,7 +17,7 @@ const FULL: usize = 5;
 const LISTED: usize = 3;
 
 /// What a finding is about: `glitch static-0, open_lower, step together`.
-pub(super) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
+pub(in crate::output) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
     let named = words::subject(scenario, asked, subject);
     let mut text = named.kind.to_string();
     if wants_oscillation(asked, subject) {
@@ -64,11 +64,9 @@ pub(super) fn worst(kind: Kind, worst: Worst) -> String {
 
 /// How often, how surely, how bad.
 fn figures(finding: &Finding) -> String {
-    let searched = matches!(finding.case.as_deref(), Some(Which::Given(_)));
-    let mut text = match (finding.tie, finding.count) {
-        (_, 0) if searched => format!("in no draw of {}, but met by directed search", words::count(finding.of)),
-        (Some(Tie::Appears), 0) => "in no draw; only when delays are moved by single femtoseconds".to_string(),
-        _ => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
+    let mut text = match finding.case.as_deref().filter(|_| finding.count == 0) {
+        Some(case) => format!("in no draw, {}", without_draws(case, finding.tie)),
+        None => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
     };
     if let Some(share) = finding.share {
         text += &format!(", {}", words::percent(share));
@@ -93,8 +91,8 @@ fn figures(finding: &Finding) -> String {
     if let Some(value) = finding.worst {
         text += &format!("; {}", worst(finding.subject.kind, value));
     }
-    if finding.tie == Some(Tie::Vanishes) {
-        text += "; gone when delays are moved by single femtoseconds (exactly equal times)";
+    if finding.tie == Some(Tie::Vanishes) && finding.count > 0 {
+        text += "; gone when times are moved by single femtoseconds (exactly equal times)";
     }
     text
 }
@@ -183,12 +181,15 @@ pub(super) fn findings(
                 let first = if finding.count > 1 { "the first: " } else { "" };
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
             }
-            if let Some(sample) = finding.worst_sample.or(finding.sample) {
-                paper.whole(4, &page.replay(sample, None));
-            } else if let (Some(_), Some(searching)) = (&finding.case, searching)
-                && let Some(file) = file_of(searching.files, finding.subject.question)
-            {
-                paper.whole(4, &page.replay_file(file));
+            match finding.shown_by() {
+                Some(Which::Given(_)) => {
+                    let file = searching.and_then(|it| file_of(it.files, finding.subject.question));
+                    if let Some(file) = file {
+                        paper.whole(4, &page.replay_file(file));
+                    }
+                }
+                Some(case) => paper.whole(4, &page.replay(&case, None)),
+                None => {}
             }
         }
         super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");

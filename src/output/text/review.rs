@@ -3,7 +3,7 @@
 use super::Page;
 use super::paper::{Paper, Tone};
 use super::search::{Searching, search};
-use super::{conditions, findings, flow, notes, rules, steps, sure};
+use super::{conditions, findings, flow, notes, rules, steps, sure, ties};
 use crate::output::search::case_files;
 use crate::output::words;
 use crate::review::{Call, Review, Verdict};
@@ -68,6 +68,7 @@ pub(super) fn body(
     conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
     sure::sure(paper, report);
+    ties::ties(paper, report);
     rules::not_judged(paper, scenario, report);
     rules::margins(paper, scenario, report, searching);
     if let Some(searching) = searching {
