@@ -363,7 +363,7 @@ fn lists() {
     let review = results::review(&scenario);
     golden("outcomes.csv", &tables::outcomes(&scenario, &review.sweep));
     golden("findings.csv", &tables::findings(&scenario, &review.asked, &review.sweep));
-    golden("rules.csv", &tables::rules(&scenario, &review.sweep));
+    golden("rules.csv", &tables::rules(&scenario, &review.sweep, None));
     golden("states.csv", &flow_tables::states(&scenario, &review.states));
     golden("transitions.csv", &flow_tables::transitions(&scenario, &review.states));
 }

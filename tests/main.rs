@@ -23,6 +23,7 @@ mod outside;
 mod parts;
 mod per_event;
 mod support;
+mod searches;
 mod sweeps_agree;
 mod ties;
 mod verdicts;

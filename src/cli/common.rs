@@ -139,6 +139,7 @@ pub fn page<'a>(called: Option<&'a str>, options: &'a str) -> Page<'a> {
         width: console::Term::stdout().size_checked().map_or(WIDTH, |(_, columns)| usize::from(columns)),
         scenario: called,
         options,
+        folder: "",
     }
 }
 

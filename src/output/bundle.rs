@@ -9,9 +9,13 @@ use crate::circuit::NetId;
 use crate::findings::{Asked, Kind, Subject};
 use crate::output::flow_map::{self, Map};
 use crate::output::waves::{self, Nets, Picture};
+use crate::output::instance::write_instance;
+use crate::output::search::case_files;
 use crate::output::{charts, convergence, flow_tables, json, tables, words};
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
+use crate::search::SearchReport;
+use crate::sweep::SweepReport;
 use crate::time::Time;
 
 /// Most findings that get a picture of their failing case.
@@ -99,13 +103,18 @@ pub fn of_run(scenario: &Scenario, asked: &Asked, run: &RunReport, nets: Option<
 }
 
 /// The files of a sweep: settling times, outcomes, findings, rules, conditions if there are any.
-pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::SweepReport) -> Bundle {
+pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Bundle {
+    of_searched(scenario, asked, report, None)
+}
+
+/// The files of a sweep, with what a directed search met.
+fn of_searched(scenario: &Scenario, asked: &Asked, report: &SweepReport, search: Option<&SearchReport>) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("settling.svg", charts::settling(scenario, report));
     bundle.add("settling.csv", tables::settling(scenario, report));
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));
     bundle.add("findings.csv", tables::findings(scenario, asked, report));
-    bundle.add("rules.csv", tables::rules(scenario, report));
+    bundle.add("rules.csv", tables::rules(scenario, report, search));
     if report.stopped.is_some() {
         bundle.add("convergence.svg", convergence::svg(scenario, asked, report));
         bundle.add("convergence.csv", convergence::csv(scenario, asked, report));
@@ -117,7 +126,8 @@ pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::Sweep
 }
 
 /// The files of a review: `result.json`, `waves-typical`, a `waves-<kind>-<net or pattern>-<step>` for each of the worst
-/// findings whose failing case was run (at most [`MOST_PICTURES`]), the files of the sweep and of the flow table.
+/// findings whose failing case was run (at most [`MOST_PICTURES`]), `worst-<n>.toml` for the cases that only the directed
+/// search met, the files of the sweep and of the flow table.
 pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("result.json", json::review(scenario, review));
@@ -147,7 +157,10 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
             .notes
             .push(format!("{some} of {all} have a picture; run --delays sample:N draws any other (see findings.csv)."));
     }
-    let sweep = of_sweep(scenario, &review.asked, &review.sweep);
+    for file in case_files(review) {
+        bundle.add(&file.name, write_instance(file.case, scenario));
+    }
+    let sweep = of_searched(scenario, &review.asked, &review.sweep, review.search.as_ref());
     bundle.files.extend(sweep.files);
     bundle.files.extend(of_states(scenario, &review.states).files);
     bundle
@@ -223,7 +236,7 @@ pub fn prepare(folder: &Path) -> Result<(), WriteError> {
     fs::create_dir_all(folder).map_err(|source| WriteError::Folder { folder: folder.to_path_buf(), source })
 }
 
-/// Takes pictures of findings out of a folder that an earlier review left there and this one does not have: they would be
+/// Takes pictures of findings and worst cases out of a folder that an earlier review left there and this one does not have: they would be
 /// taken for findings of this one.
 pub fn clear_pictures(folder: &Path, bundle: &Bundle) {
     let ours: BTreeSet<&str> = bundle.files.iter().map(|file| file.name.as_str()).collect();
@@ -231,10 +244,15 @@ pub fn clear_pictures(folder: &Path, bundle: &Bundle) {
         let kind = name.strip_prefix("waves-");
         kind.is_some_and(|rest| Kind::ALL.iter().any(|kind| rest.starts_with(&format!("{}-", safe(kind.word())))))
     };
+    let of_a_search = |name: &str| {
+        let number = name.strip_prefix("worst-").and_then(|rest| rest.strip_suffix(".toml"));
+        number.is_some_and(|number| number.parse::<u32>().is_ok())
+    };
     for entry in fs::read_dir(folder).into_iter().flatten().flatten() {
         let name = entry.file_name();
-        if let Some(name) = name.to_str().filter(|name| of_a_finding(name) && !ours.contains(name)) {
-            // what cannot be removed is only an old picture
+        let old = |name: &&str| (of_a_finding(name) || of_a_search(name)) && !ours.contains(name);
+        if let Some(name) = name.to_str().filter(old) {
+            // what cannot be removed is only an old file
             let _ = fs::remove_file(folder.join(name));
         }
     }

@@ -209,6 +209,7 @@ pub fn review(scenario: &Scenario) -> Review {
             (3, cases::run(scenario, Which::Sample(8123))),
         ],
         why: vec![None; sweep.findings.len()],
+        search: None,
         sweep,
         asked,
         verdict: Verdict {

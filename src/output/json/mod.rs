@@ -12,6 +12,7 @@ mod part;
 mod parts;
 mod review;
 mod run;
+mod search;
 mod states;
 mod sweep;
 

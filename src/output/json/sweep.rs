@@ -26,7 +26,7 @@ pub(super) struct Sweep<'a> {
     vary: &'static str,
     windows: Vec<Window<'a>>,
     rules: Vec<Rule<'a>>,
-    findings: Vec<Found<'a>>,
+    pub(super) findings: Vec<Found<'a>>,
     failures_at_most: Option<OneLine<AtMost>>,
     unseen_mass: Option<OneLine<Unseen<'a>>>,
     unseen_untold: u64,
@@ -88,7 +88,7 @@ struct Rule<'a> {
 }
 
 #[derive(Serialize)]
-struct Found<'a> {
+pub(super) struct Found<'a> {
     #[serde(skip_serializing_if = "Option::is_none")]
     condition: Option<&'a str>,
     kind: &'static str,
@@ -107,7 +107,7 @@ struct Found<'a> {
     tie: Option<&'static str>,
     sample: Option<u64>,
     worst_sample: Option<u64>,
-    case: Option<String>,
+    pub(super) case: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
 }

@@ -2,7 +2,10 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
+use super::search::Searching;
 use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
+use crate::instance::Which;
+use crate::output::search::file_of;
 use crate::output::words;
 use crate::review::{departure_words, without_draws};
 use crate::scenario::{Scenario, Vary};
@@ -162,7 +165,14 @@ impl Group<'_> {
 }
 
 /// Findings that break a rule in full, then those that break none.
-pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, asked: &Asked, report: &SweepReport) {
+pub(super) fn findings(
+    paper: &mut Paper,
+    page: &Page<'_>,
+    scenario: &Scenario,
+    asked: &Asked,
+    report: &SweepReport,
+    searching: Option<Searching<'_>>,
+) {
     let (broken, listed) = (groups(asked, report, true), groups(asked, report, false));
     if !broken.is_empty() {
         paper.heading("Findings that break a rule, worst first");
@@ -174,8 +184,15 @@ pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, 
                 let first = if finding.count > 1 { "the first: " } else { "" };
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
             }
-            if let Some(case) = finding.shown_by() {
-                paper.whole(4, &page.replay(&case, None));
+            match finding.shown_by() {
+                Some(Which::Given(_)) => {
+                    let file = searching.and_then(|it| file_of(it.files, finding.subject.question));
+                    if let Some(file) = file {
+                        paper.whole(4, &page.replay_file(file));
+                    }
+                }
+                Some(case) => paper.whole(4, &page.replay(&case, None)),
+                None => {}
             }
         }
         super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");

@@ -14,6 +14,7 @@ mod part;
 mod review;
 mod rules;
 mod run;
+mod search;
 mod states;
 mod steps;
 mod sure;
@@ -43,11 +44,13 @@ pub struct Page<'a> {
     pub scenario: Option<&'a str>,
     /// Options of the draws that the user gave, for the same commands: ` --seed 7`; else empty.
     pub options: &'a str,
+    /// The folder of the files of this review, for the same commands; empty if files are named alone.
+    pub folder: &'a str,
 }
 
 impl Default for Page<'_> {
     fn default() -> Self {
-        Page { style: Style::Plain, width: 100, scenario: None, options: "" }
+        Page { style: Style::Plain, width: 100, scenario: None, options: "", folder: "" }
     }
 }
 
@@ -61,6 +64,15 @@ impl Page<'_> {
         let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
         let condition = condition.map_or_else(String::new, |name| format!(" --condition {}", in_a_shell(name)));
         format!("stillgate run{scenario}{}{condition} --delays {}", self.options, case.key())
+    }
+}
+
+impl Page<'_> {
+    /// The command that runs the case in a file of this review.
+    fn replay_file(&self, file: &str) -> String {
+        let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
+        let path = std::path::Path::new(self.folder).join(file);
+        format!("stillgate run{scenario} --delays {}", in_a_shell(&path.display().to_string()))
     }
 }
 

@@ -2,7 +2,9 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
+use super::search::{Searching, search};
 use super::{conditions, findings, flow, notes, rules, steps, sure, ties};
+use crate::output::search::case_files;
 use crate::output::words;
 use crate::review::{Call, Review, Verdict};
 use crate::scenario::{Scenario, Vary};
@@ -15,7 +17,9 @@ const REASONS: usize = 5;
 pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     verdict(&mut paper, &review.verdict);
-    body(&mut paper, page, scenario, &review.asked, &review.sweep);
+    let files = case_files(review);
+    let searching = review.search.as_ref().map(|report| Searching { report, files: &files });
+    body(&mut paper, page, scenario, &review.asked, &review.sweep, searching);
     flow::short(&mut paper, scenario, &review.states.flow);
     notes::notes(&mut paper, scenario);
     paper.finish()
@@ -52,6 +56,7 @@ pub(super) fn body(
     scenario: &Scenario,
     asked: &crate::findings::Asked,
     report: &SweepReport,
+    searching: Option<Searching<'_>>,
 ) {
     paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
     if report.samples < report.plan.samples && !report.stopped.as_ref().is_some_and(|it| it.curve.sure) {
@@ -67,13 +72,16 @@ pub(super) fn body(
         paper.say(2, Tone::Unsure, &format!("Under condition {name}: missing {missing}."));
     }
     steps::steps(paper, scenario, report);
-    findings::findings(paper, page, scenario, asked, report);
+    findings::findings(paper, page, scenario, asked, report, searching);
     conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
     sure::sure(paper, report);
     ties::ties(paper, report);
     rules::not_judged(paper, scenario, report);
-    rules::margins(paper, scenario, report);
+    rules::margins(paper, scenario, report, searching);
+    if let Some(searching) = searching {
+        search(paper, page, searching);
+    }
 }
 
 /// What was drawn: `Monte Carlo, 10,000 draws, uniform, seed 1`.
