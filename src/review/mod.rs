@@ -4,6 +4,7 @@
 mod conditions;
 mod contained;
 mod departure;
+mod paths;
 mod report;
 mod single;
 mod verdict;
@@ -124,7 +125,8 @@ pub fn review(
         shown.push((index, run));
     }
     let verdict = with_typical(scenario, &sweep, &typical, verdict(scenario, &sweep));
-    let why = vec![None; sweep.findings.len()];
+    let mut why = vec![None; sweep.findings.len()];
+    paths::fill_races(scenario, program, &asked, &sweep, &shown, &mut why, control);
     Ok(Review { asked, states, typical: Some(typical), sweep, shown, why, verdict })
 }
 
