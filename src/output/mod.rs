@@ -14,6 +14,7 @@ mod ink;
 pub mod instance;
 pub mod json;
 mod measure;
+mod races;
 pub mod tables;
 pub mod text;
 pub mod waves;

@@ -82,3 +82,11 @@ fn compares(kind: Kind) -> bool {
         [Kind::Expect, Kind::NeverAtRest, Kind::NotInReference, Kind::CriticalRace, Kind::NonCriticalRace];
     by_comparison.contains(&kind)
 }
+
+impl RunReport {
+    /// The two paths that race where a fact of this run was found, as far as the run tells it alone: for a wrong state at
+    /// rest a review compares runs, and can say more.
+    pub fn race(&self, scenario: &Scenario, asked: &Asked, fact: &Fact) -> Option<RacePair> {
+        race_pair(scenario, asked, fact, &self.trace, None)
+    }
+}

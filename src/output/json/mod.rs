@@ -8,6 +8,7 @@
 mod check;
 mod flow;
 mod parts;
+mod races;
 mod review;
 mod run;
 mod states;

@@ -38,7 +38,7 @@ pub fn review(scenario: &Scenario, review: &Review) -> String {
         not_analysed: &scenario.not_analysed,
         states: States::of(scenario, &review.states, None),
         typical: review.typical.as_ref().map(|run| Run::of(scenario, asked, run, None)),
-        sweep: Sweep::of(scenario, asked, &review.sweep, None),
+        sweep: Sweep::of(scenario, asked, &review.sweep, None).explained(scenario, &review.why),
         proof: None,
     })
 }

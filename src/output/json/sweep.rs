@@ -4,8 +4,9 @@ use serde::Serialize;
 
 use super::parts::{Departed, Exact, Level, Measured, Object, OneLine, state};
 use crate::findings::Asked;
+use super::races::Race;
 use crate::output::words::{self, six};
-use crate::review::{Verdict, by_condition};
+use crate::review::{Verdict, Why, by_condition};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, Settling, SweepReport, WindowReport};
 
@@ -26,6 +27,8 @@ pub(super) struct Sweep<'a> {
     unseen_untold: u64,
     #[serde(skip_serializing_if = "Option::is_none")]
     conditions: Option<Vec<Condition<'a>>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    races_not_looked_for: Option<usize>,
 }
 
 #[derive(Serialize)]
@@ -102,6 +105,9 @@ struct Found<'a> {
     worst_sample: Option<u64>,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
+    /// Absent where nobody looked for it.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    race: Option<Option<Race<'a>>>,
 }
 
 #[derive(Serialize)]
@@ -188,7 +194,17 @@ impl<'a> Sweep<'a> {
             }),
             unseen_untold: report.unseen_untold,
             conditions: Some(conditions),
+            races_not_looked_for: None,
         }
+    }
+
+    /// With the two paths that race, for the findings where they were looked for.
+    pub fn explained(mut self, scenario: &'a Scenario, why: &[Option<Why>]) -> Sweep<'a> {
+        for (finding, why) in self.findings.iter_mut().zip(why) {
+            finding.race = why.as_ref().map(|why| why.race.as_ref().map(|pair| Race::of(scenario, pair)));
+        }
+        self.races_not_looked_for = Some(why.iter().filter(|why| why.is_none()).count());
+        self
     }
 }
 
@@ -276,6 +292,7 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         sample: finding.sample,
         worst_sample: finding.worst_sample,
         reference: finding.against.as_ref().map(|it| Departed::of(scenario, it)),
+        race: None,
     }
 }
 

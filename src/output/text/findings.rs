@@ -3,8 +3,8 @@
 use super::Page;
 use super::paper::{Paper, Tone};
 use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
-use crate::output::words;
-use crate::review::departure_words;
+use crate::output::{races, words};
+use crate::review::{Why, departure_words};
 use crate::scenario::Scenario;
 use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
@@ -158,8 +158,27 @@ impl Group<'_> {
     }
 }
 
+/// The two paths that race, one line each.
+fn race(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, why: Option<&Why>) {
+    let Some(pair) = why.and_then(|why| why.race.as_ref()) else { return };
+    for line in races::lines(scenario, pair, page.columns() - 4) {
+        paper.hang(4, 6, Tone::Plain, &line);
+    }
+}
+
 /// Findings that break a rule in full, then those that break none.
-pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, asked: &Asked, report: &SweepReport) {
+pub(super) fn findings(
+    paper: &mut Paper,
+    page: &Page<'_>,
+    scenario: &Scenario,
+    asked: &Asked,
+    report: &SweepReport,
+    why: &[Option<Why>],
+) {
+    let of = |finding: &Finding| {
+        let index = report.findings.iter().position(|it| std::ptr::eq(it, finding))?;
+        why.get(index)?.as_ref()
+    };
     let (broken, listed) = (groups(asked, report, true), groups(asked, report, false));
     if !broken.is_empty() {
         paper.heading("Findings that break a rule, worst first");
@@ -171,16 +190,23 @@ pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, 
                 let first = if finding.count > 1 { "the first: " } else { "" };
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
             }
+            race(paper, page, scenario, of(finding));
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
                 paper.whole(4, &page.replay(sample, None));
             }
         }
         super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");
+        let looked_for = report.findings.iter().zip(why).filter(|(it, why)| it.breaks_rule && why.is_some()).count();
+        if !why.is_empty() && looked_for < report.findings.iter().filter(|it| it.breaks_rule).count() {
+            let looked_for = words::many(looked_for as u64, "finding");
+            paper.say(2, Tone::Plain, &format!("The paths that race were looked for in the first {looked_for} only."));
+        }
     }
     if !listed.is_empty() {
         paper.heading("Also seen, breaks no rule");
         for group in listed.iter().take(LISTED) {
             paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures()));
+            race(paper, page, scenario, of(group.worst));
         }
         super::more(paper, listed.len().saturating_sub(LISTED), "findings.csv");
     }

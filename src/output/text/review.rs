@@ -4,7 +4,7 @@ use super::Page;
 use super::paper::{Paper, Tone};
 use super::{conditions, findings, flow, notes, rules, steps, sure};
 use crate::output::words;
-use crate::review::{Call, Review, Verdict};
+use crate::review::{Call, Review, Verdict, Why};
 use crate::scenario::Scenario;
 use crate::sweep::SweepReport;
 
@@ -15,7 +15,7 @@ const REASONS: usize = 5;
 pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     verdict(&mut paper, &review.verdict);
-    body(&mut paper, page, scenario, &review.asked, &review.sweep);
+    body(&mut paper, page, scenario, &review.asked, &review.sweep, &review.why);
     flow::short(&mut paper, scenario, &review.states.flow);
     notes::notes(&mut paper, scenario);
     paper.finish()
@@ -52,6 +52,7 @@ pub(super) fn body(
     scenario: &Scenario,
     asked: &crate::findings::Asked,
     report: &SweepReport,
+    why: &[Option<Why>],
 ) {
     paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
     if report.samples < report.plan.samples {
@@ -59,7 +60,7 @@ pub(super) fn body(
         paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run."));
     }
     steps::steps(paper, scenario, report);
-    findings::findings(paper, page, scenario, asked, report);
+    findings::findings(paper, page, scenario, asked, report, why);
     conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
     sure::sure(paper, report);
