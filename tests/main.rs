@@ -19,6 +19,7 @@ mod judges_agree;
 mod malformed;
 mod outcomes_agree;
 mod outside;
+mod paths;
 mod support;
 mod sweeps_agree;
 mod verdicts;

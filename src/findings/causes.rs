@@ -49,13 +49,13 @@ impl<'a> Causes<'a> {
     pub fn changes(&self, net: NetId, batches: &Range<u32>) -> &[u32] {
         let all = &self.of_net[net.index()];
         let until = |batch: u32| all.partition_point(|i| self.trace.changes[*i as usize].batch < batch);
-        &all[until(batches.start)..until(batches.end)]
+        &all[until(batches.start)..until(batches.end.max(batches.start))]
     }
 
     fn arrivals(&self, wire: WireId, batches: &Range<u32>) -> &[u32] {
         let all = &self.of_wire[wire.0 as usize];
         let until = |batch: u32| all.partition_point(|i| self.trace.arrivals[*i as usize].batch < batch);
-        &all[until(batches.start)..until(batches.end)]
+        &all[until(batches.start)..until(batches.end.max(batches.start))]
     }
 
     /// What a gate hears at one of its pins in some batches.
@@ -299,6 +299,6 @@ impl<'a> Causes<'a> {
     pub fn lost(&self, batches: &Range<u32>) -> &[Lost] {
         let all = &self.trace.lost;
         let until = |batch: u32| all.partition_point(|lost| lost.batch < batch);
-        &all[until(batches.start)..until(batches.end)]
+        &all[until(batches.start)..until(batches.end.max(batches.start))]
     }
 }

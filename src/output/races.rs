@@ -6,39 +6,43 @@ use crate::output::words;
 use crate::scenario::Scenario;
 use crate::time::{Span, Unit};
 
-/// Widest line of a path.
-pub(super) const WIDTH: usize = 96;
+/// Longest text of a path by itself.
+const WIDTH: usize = 200;
 /// Most digits behind the point.
 const DECIMALS: u32 = 4;
 
-/// One line a path, beginning with its letter: `A 21.4 ns = hold_lower↑ 9.8 + open_lower↓ 11.6, from call_upper↓`. Long
-/// chains are cut in the middle so that a line has at most `width` letters, if names allow. Delays are rounded.
+/// One text a path, beginning with its letter: `A 21.4 ns = hold_lower↑ 9.8 + open_lower↓ 11.6, from call_upper↓`. What both
+/// begin with is said once. Long chains are cut in the middle so that a text has at most `width` letters, if names allow.
+/// Delays are rounded.
 pub(super) fn lines(scenario: &Scenario, pair: &RacePair, width: usize) -> Vec<String> {
     let alike = pair.second.as_ref().is_none_or(|it| (it.from, it.at) == (pair.first.from, pair.first.at));
     let meet = pair.meet.filter(|_| pair.second.is_some());
     let meet = meet.map_or_else(String::new, |net| format!("; they meet at {}", words::net(scenario, net)));
-    let first = line(scenario, &pair.first, "A", alike, "", width);
-    let second = pair.second.as_ref().map(|path| line(scenario, path, "B", alike, &meet, width));
+    let tail = |path: &Path| beginning(scenario, path, alike);
+    let first = line(scenario, &pair.first, "A", &tail(&pair.first), width);
+    let second = pair.second.as_ref().map(|path| {
+        let from = if alike && !path.legs.is_empty() { String::new() } else { tail(path) };
+        line(scenario, path, "B", &format!("{from}{meet}"), width)
+    });
     std::iter::once(first).chain(second).collect()
 }
 
 /// A path by itself, without a letter.
 pub(super) fn alone(scenario: &Scenario, path: &Path) -> String {
-    line(scenario, path, "", false, "", WIDTH).trim_start().to_string()
+    line(scenario, path, "", &beginning(scenario, path, false), WIDTH).trim_start().to_string()
 }
 
-fn line(scenario: &Scenario, path: &Path, letter: &str, alike: bool, end: &str, width: usize) -> String {
+fn line(scenario: &Scenario, path: &Path, letter: &str, tail: &str, width: usize) -> String {
     let unit = scenario.unit;
     let decimals = decimals(path, unit);
     let number = |span: Span| fixed(span, unit, decimals);
-    let tail = format!("{}{end}", beginning(scenario, path, alike));
     if path.legs.is_empty() {
         return format!("{letter} 0 {unit}{tail}");
     }
     let head = format!("{letter} {} {unit} = ", number(path.total()));
     let legs: Vec<String> = path.legs.iter().map(|leg| leg_words(scenario, leg, &number(leg.delay))).collect();
     let length = |text: &str| text.chars().count();
-    let room = width.saturating_sub(length(&head) + length(&tail));
+    let room = width.saturating_sub(length(&head) + length(tail));
     format!("{head}{}{tail}", joined(&legs, room))
 }
 
@@ -52,7 +56,11 @@ fn joined(legs: &[String], room: usize) -> String {
     // from the middle on leg after leg goes, in turn before and behind it, down to the first and the last
     let (mut before, mut behind) = (first, rest - first);
     loop {
-        if before > behind { before -= 1 } else { behind -= 1 }
+        if before > behind {
+            before -= 1
+        } else {
+            behind -= 1
+        }
         let left_out = rest - before - behind;
         let (start, end) = (legs[..before].join(" + "), legs[rest - behind..].join(" + "));
         let text = format!("{start} + … {left_out} more + {end}");

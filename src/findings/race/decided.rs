@@ -96,12 +96,12 @@ fn answered(here: &Side<'_>, there: &Side<'_>, root: u32) -> Option<Found> {
     let nth = here.number(change.net, root)?;
     if let Some(lost) = there.lost(gate, nth, change.new) {
         let rival = there.run.ended_by(lost);
-        let (second, meet) = here.told_of(there, rival, here.run.batch(Link::Change(root)))?;
+        let (second, meet) = here.told_of(there, rival, Link::Change(root))?;
         return Some(here.found(Link::Change(root), second, meet.unwrap_or(change.net)));
     }
     let (early, late) = inversion(here, there, gate, here.run.cause(root))?;
     let (won, lost) = (here.heard(early)?, there.heard(late)?);
-    let (second, meet) = here.told_of(there, lost, here.run.batch(won))?;
+    let (second, meet) = here.told_of(there, lost, won)?;
     Some(here.found(won, second, meet.unwrap_or(change.net)))
 }
 
@@ -116,7 +116,7 @@ fn held(here: &Side<'_>, there: &Side<'_>, root: u32) -> Option<Found> {
     }
     let (early, late) = inversion(there, here, gate, there.run.cause(root))?;
     let (won, lost) = (here.heard(late)?, there.heard(early)?);
-    let (second, meet) = here.told_of(there, lost, here.run.batch(won))?;
+    let (second, meet) = here.told_of(there, lost, won)?;
     Some(here.found(won, second, meet.unwrap_or(change.net)))
 }
 
@@ -132,6 +132,10 @@ type Heard = (Pin, usize);
 fn inversion(a: &Side<'_>, b: &Side<'_>, gate: GateId, cause: Link) -> Option<(Heard, Heard)> {
     let run = a.run;
     let batch = run.batch(cause);
+    if !a.batches.contains(&batch) {
+        // it was on its way before the window began
+        return None;
+    }
     let count = |pin: Pin| run.heard(pin, &(a.batches.start..batch + 1)).len();
     let when = |it: Heard| b.heard(it).map_or(NEVER, |link| b.run.batch(link));
     let answer = run.function(gate, |pin| run.at_pin(pin, batch + 1))?;
@@ -216,21 +220,22 @@ impl Side<'_> {
         all.find(|lost| lost.event.site == Site::Gate(gate) && lost.event.new == new && by_then(lost.batch) == nth)
     }
 
-    /// What here corresponds to something that came in `other`, not before `batch`: the same change, an event that was
-    /// cancelled, or, if it was never on its way, the last on the way to it that is still to come. With it the net at whose
-    /// gate its way ends, where that is not its end.
-    fn told_of(&self, other: &Side<'_>, link: Link, batch: u32) -> Option<(Path, Option<NetId>)> {
+    /// What here corresponds to something that came in `other`, if it is too late for `won`: the same change, an event that
+    /// was cancelled, or, if it was never on its way, the last on the way to it that is still to come. With it the net at
+    /// whose gate its way ends, where that is not its end.
+    fn told_of(&self, other: &Side<'_>, link: Link, won: Link) -> Option<(Path, Option<NetId>)> {
         let (mut link, mut meet) = (link, None);
         loop {
             if let Some(ours) = self.counterpart(other, link) {
-                return (self.run.batch(ours) >= batch).then(|| (self.run.path(ours), meet));
+                return (self.run.batch(ours) >= self.run.batch(won)).then(|| (self.run.path(ours), meet));
             }
             if let Link::Change(i) = link {
                 let change = other.run.trace.changes[i as usize];
                 let nth = other.number(change.net, i)?;
                 let gate = self.run.circuit.driver(change.net)?;
                 if let Some(lost) = self.lost(gate, nth, change.new) {
-                    return Some((self.run.path_to_lost(lost), meet));
+                    let late = lost.event.due >= self.run.time(won);
+                    return late.then(|| (self.run.path_to_lost(lost), meet));
                 }
                 meet = Some(change.net);
             }

@@ -3,8 +3,8 @@
 use serde::Serialize;
 
 use super::parts::{Departed, Exact, Level, Measured, Object, OneLine, state};
-use crate::findings::Asked;
 use super::races::Race;
+use crate::findings::Asked;
 use crate::output::words::{self, six};
 use crate::review::{Verdict, Why, by_condition};
 use crate::scenario::Scenario;

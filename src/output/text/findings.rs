@@ -2,7 +2,7 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
+use crate::findings::{Against, Asked, Kind, RacePair, RuleKey, Subject};
 use crate::output::{races, words};
 use crate::review::{Why, departure_words};
 use crate::scenario::Scenario;
@@ -10,6 +10,10 @@ use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
 /// Most findings told in full.
 const FULL: usize = 5;
+/// Lines that one of two paths takes, at most.
+const LINES: usize = 2;
+/// With more findings that break a rule than this, paths of others are told in the JSON only.
+const FEW: usize = 2;
 /// Most findings listed that break no rule.
 const LISTED: usize = 3;
 
@@ -158,10 +162,22 @@ impl Group<'_> {
     }
 }
 
-/// The two paths that race, one line each.
-fn race(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, why: Option<&Why>) {
-    let Some(pair) = why.and_then(|why| why.race.as_ref()) else { return };
-    for line in races::lines(scenario, pair, page.columns() - 4) {
+/// The two paths that race, one line each; a pair that was told before is told by the number of its finding.
+fn race<'a>(
+    paper: &mut Paper,
+    page: &Page<'_>,
+    scenario: &Scenario,
+    why: Option<&'a Why>,
+    told: &mut Vec<Option<&'a RacePair>>,
+) {
+    let pair = why.and_then(|why| why.race.as_ref());
+    let before = told.iter().position(|it| pair.is_some() && *it == pair);
+    told.push(pair);
+    let Some(pair) = pair else { return };
+    if let Some(before) = before {
+        return paper.say(4, Tone::Plain, &format!("The paths that race are those of {}.", before + 1));
+    }
+    for line in races::lines(scenario, pair, LINES * (page.columns() - 8)) {
         paper.hang(4, 6, Tone::Plain, &line);
     }
 }
@@ -182,6 +198,7 @@ pub(super) fn findings(
     let (broken, listed) = (groups(asked, report, true), groups(asked, report, false));
     if !broken.is_empty() {
         paper.heading("Findings that break a rule, worst first");
+        let mut told = Vec::new();
         for (i, group) in broken.iter().take(FULL).enumerate() {
             let finding = group.worst;
             paper.hang(2, 4, Tone::Bad, &format!("{} {}", i + 1, group.about(scenario, asked)));
@@ -190,7 +207,7 @@ pub(super) fn findings(
                 let first = if finding.count > 1 { "the first: " } else { "" };
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
             }
-            race(paper, page, scenario, of(finding));
+            race(paper, page, scenario, of(finding), &mut told);
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
                 paper.whole(4, &page.replay(sample, None));
             }
@@ -204,9 +221,11 @@ pub(super) fn findings(
     }
     if !listed.is_empty() {
         paper.heading("Also seen, breaks no rule");
-        for group in listed.iter().take(LISTED) {
+        for (i, group) in listed.iter().take(LISTED).enumerate() {
             paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures()));
-            race(paper, page, scenario, of(group.worst));
+            if i == 0 && broken.len() <= FEW {
+                race(paper, page, scenario, of(group.worst), &mut Vec::new());
+            }
         }
         super::more(paper, listed.len().saturating_sub(LISTED), "findings.csv");
     }

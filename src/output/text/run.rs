@@ -49,7 +49,7 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
             let (tone, words) = told(scenario, asked, report, fact);
             paper.item(tone, &words);
             if let Some(pair) = report.race(scenario, asked, fact) {
-                for line in races::lines(scenario, &pair, page.columns() - 4) {
+                for line in races::lines(scenario, &pair, 2 * (page.columns() - 8)) {
                     paper.hang(4, 6, Tone::Plain, &line);
                 }
             }
