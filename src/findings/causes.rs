@@ -164,7 +164,7 @@ impl<'a> Causes<'a> {
         let of = |completion: u32| {
             self.circuit.wants(gate, |net| match open.iter().position(|it| *it == net) {
                 Some(at) => completion >> at & 1 == 1,
-                None => values.iter().any(|it| *it == (net, Value::One)),
+                None => values.contains(&(net, Value::One)),
             })
         };
         let first = of(0);
@@ -191,16 +191,19 @@ impl<'a> Causes<'a> {
     /// Walks back from `link`, before which lie `legs`, latest first.
     fn walk(&self, mut link: Link, mut legs: Vec<Leg>) -> Path {
         let mut path = Path { from: None, moment: None, at: Time::ZERO, legs: Vec::new(), left_out: 0 };
-        loop {
-            let Some((leg, cause)) = self.leg(link) else { break };
-            if legs.len() < Path::MOST {
-                legs.push(leg);
-                if legs.len() == Path::MOST {
-                    // it begins here, should there be more
-                    (path.from, path.at) = (self.change_of(cause), self.time(cause));
-                }
-            } else {
+        let mut full = false;
+        while let Some((leg, cause)) = self.leg(link) {
+            if full {
                 path.left_out += 1;
+            } else if legs.len() + 1 == Path::MOST && matches!(cause, Link::Arrival(_)) {
+                // it begins with a change, not in the middle between a wire and its gate
+                (full, path.left_out) = (true, 1);
+                (path.from, path.at) = (self.change_of(link), self.time(link));
+            } else {
+                legs.push(leg);
+                full = legs.len() == Path::MOST;
+                // where it begins, should there be more
+                (path.from, path.at) = (self.change_of(cause), self.time(cause));
             }
             link = cause;
         }

@@ -1,5 +1,7 @@
 //! The two paths that race, for the findings of a sweep.
 
+use std::cell::Cell;
+
 use super::single::run_one;
 use super::why::Why;
 use crate::control::Control;
@@ -16,6 +18,8 @@ const BREAKING: usize = 200;
 const OTHERS: usize = 12;
 /// Runs that a wrong state is compared with, at most.
 const COMPARED: usize = 8;
+/// Transitions of all runs that are made for it: with more, no further finding is looked at.
+const TRANSITIONS: usize = 20_000_000;
 
 /// Fills in which two paths race, for the first findings that break a rule and the first that break none. Findings beyond
 /// keep `None` if nothing else was looked into: results say how many.
@@ -29,15 +33,20 @@ pub(super) fn fill_races(
     control: &Control,
 ) {
     let mut left = [OTHERS, BREAKING];
+    let transitions = Cell::new(0);
+    let run = |which: Which| {
+        let report = run_one(scenario, program, asked, which, control)?;
+        transitions.set(transitions.get() + report.trace.changes.len());
+        Some(report)
+    };
     for (index, finding) in sweep.findings.iter().enumerate() {
         let left = &mut left[usize::from(finding.breaks_rule)];
-        if *left == 0 || control.cancelled() {
+        if *left == 0 || transitions.get() > TRANSITIONS || control.cancelled() {
             continue;
         }
         *left -= 1;
         let case = finding.worst_sample.or(finding.sample).map(Which::Sample);
         let Some(case) = case.or_else(|| finding.case.as_deref().cloned()) else { continue };
-        let run = |which: Which| run_one(scenario, program, asked, which, control);
         let kept = shown.iter().find(|it| it.0 == index).map(|it| it.1.clone());
         let Some(failing) = kept.or_else(|| run(case)) else { continue };
         let race = race_of(scenario, asked, sweep, finding, &failing, run);

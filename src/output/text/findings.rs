@@ -215,8 +215,9 @@ pub(super) fn findings(
         super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");
         let looked_for = report.findings.iter().zip(why).filter(|(it, why)| it.breaks_rule && why.is_some()).count();
         if !why.is_empty() && looked_for < report.findings.iter().filter(|it| it.breaks_rule).count() {
-            let looked_for = words::many(looked_for as u64, "finding");
-            paper.say(2, Tone::Plain, &format!("The paths that race were looked for in the first {looked_for} only."));
+            let broken = report.findings.iter().filter(|it| it.breaks_rule).count() as u64;
+            let (some, all) = (words::count(looked_for as u64), words::many(broken, "finding"));
+            paper.say(2, Tone::Plain, &format!("The paths that race were looked for in {some} of {all}."));
         }
     }
     if !listed.is_empty() {
