@@ -295,14 +295,25 @@ fn pairs_of_random_findings_are_connected_and_add_up() {
             let mut observers = (Trace::default(), Judge::new(&scenario, &asked, Answers::default()));
             program.machine().run(&instance, &Control::default(), &mut observers);
             let (failing, facts) = (observers.0, observers.1.sink.facts);
-            // the same delays a little later or earlier, as another draw would have them
-            let mut moved = instance.clone();
-            for (i, delay) in moved.delays.gate.iter_mut().flatten().enumerate() {
-                *delay = fs((delay.fs() * (7 + (i as u64 * 5 + case as u64) % 9)).div_ceil(10));
+            // the same delays a little later or earlier, as other draws would have them
+            let others: Vec<Trace> = (0..8)
+                .map(|draw| {
+                    let mut moved = instance.clone();
+                    for (i, delay) in moved.delays.gate.iter_mut().flatten().enumerate() {
+                        let share = (7 * i as u64 * i as u64 + 5 * case as u64 + 3 * draw * (i as u64 + 1)) % 13;
+                        *delay = fs((delay.fs() * (5 + share)).div_ceil(10));
+                    }
+                    trace(&program, &moved)
+                })
+                .collect();
+            let mut asked_for: Vec<(Fact, &Trace)> = facts.into_iter().map(|fact| (fact, &others[0])).collect();
+            for (draw, other) in others.iter().enumerate() {
+                let races = races(&failing, other).into_iter();
+                let races = races.filter(|it| draw == 0 || it.subject.kind == Kind::CriticalRace);
+                asked_for.extend(races.map(|fact| (fact, other)));
             }
-            let other = trace(&program, &moved);
-            for fact in facts.into_iter().chain(races(&failing, &other)) {
-                for other in [Some(&other), None] {
+            for (fact, other) in asked_for {
+                for other in [Some(other), None] {
                     let pair = race_pair(&scenario, &asked, &fact, &failing, other);
                     let met = met.entry(fact.subject.kind.word()).or_default();
                     met.0 += 1;

@@ -222,19 +222,27 @@ impl Side<'_> {
 
     /// What here corresponds to something that came in `other`, if it is too late for `won`: the same change, an event that
     /// was cancelled, or, if it was never on its way, the last on the way to it that is still to come. With it the net at
-    /// whose gate its way ends, where that is not its end.
+    /// whose gate its way ends, where that is not its end; `None` unless that gate hears of `won`, since something else
+    /// must then have stopped it.
     fn told_of(&self, other: &Side<'_>, link: Link, won: Link) -> Option<(Path, Option<NetId>)> {
         let (mut link, mut meet) = (link, None);
+        let circuit = self.run.circuit;
+        let hears = |net: NetId| {
+            let mut sources = circuit.driver(net).into_iter().flat_map(|gate| circuit.sources(gate));
+            sources.any(|source| Some(source.0) == self.run.net(won))
+        };
         loop {
             if let Some(ours) = self.counterpart(other, link) {
-                return (self.run.batch(ours) >= self.run.batch(won)).then(|| (self.run.path(ours), meet));
+                let late = self.run.batch(ours) >= self.run.batch(won) && meet.is_none_or(hears);
+                return late.then(|| (self.run.path(ours), meet));
             }
             if let Link::Change(i) = link {
                 let change = other.run.trace.changes[i as usize];
                 let nth = other.number(change.net, i)?;
-                let gate = self.run.circuit.driver(change.net)?;
-                if let Some(lost) = self.lost(gate, nth, change.new) {
-                    let late = lost.event.due >= self.run.time(won);
+                if let Some(lost) = self.lost(circuit.driver(change.net)?, nth, change.new) {
+                    // on its way to something else it met what cancelled it
+                    let meet = meet.map(|_| change.net);
+                    let late = lost.event.due >= self.run.time(won) && meet.is_none_or(hears);
                     return late.then(|| (self.run.path_to_lost(lost), meet));
                 }
                 meet = Some(change.net);

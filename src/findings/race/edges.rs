@@ -12,8 +12,13 @@ use crate::time::{Span, Time};
 
 /// The two edges of a pulse.
 pub(super) fn pulse(run: &Causes<'_>, net: NetId, (from, to): (Time, Time)) -> Option<RacePair> {
-    let (first, second) = (run.change_at(net, from, None)?, run.change_at(net, to, None)?);
-    (first != second).then(|| RacePair::of_a_pulse(run.path(first), run.path(second)))
+    let all = run.changes(net, &(0..run.trace.batches));
+    let at = |i: usize| run.time(Link::Change(all[i]));
+    // at one instant there may be several: the last begins it, the first after that ends it
+    let first = (0..all.len()).rfind(|i| at(*i) <= from && (*i + 1..all.len()).any(|j| at(j) == to))?;
+    let second = (first + 1..all.len()).find(|i| at(*i) == to).filter(|_| at(first) == from)?;
+    let path = |i: usize| run.path(Link::Change(all[i]));
+    Some(RacePair::of_a_pulse(path(first), path(second)))
 }
 
 /// Too many transitions: the edges of the narrowest pulse. Too few: the pulse that the net's gate swallowed, or else the only
