@@ -56,7 +56,7 @@
 //! # The floors, lowest first
 //!
 //! [`time`], [`logic`], [`control`] · [`circuit`] · [`delay`] · [`scenario`] · [`instance`] · [`statics`] · [`flow`] · [`engine`] ·
-//! [`findings`] · [`sweep`] · [`review`] · [`reader`], [`output`] · [`cli`]. A module uses only floors below its own.
+//! [`findings`] · [`sweep`] · [`review`] · [`limit`] · [`reader`], [`output`] · [`cli`]. A module uses only floors below its own.
 //!
 //! # What is not modelled
 //!
@@ -74,6 +74,7 @@ pub mod engine;
 pub mod findings;
 pub mod flow;
 pub mod instance;
+pub mod limit;
 pub mod logic;
 pub mod output;
 pub mod reader;

@@ -6,6 +6,7 @@
 
 mod cases;
 mod flows;
+mod limits;
 mod results;
 
 use std::path::PathBuf;

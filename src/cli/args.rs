@@ -27,6 +27,8 @@ pub enum Command {
     Run(Running),
     /// The Monte Carlo sweep alone
     Sweep(Sweeping),
+    /// How fast may it go: shortest spacing, pulse, period, setup or hold, longest skew for which all rules pass
+    Limit(Limiting),
     /// All stable states, without delays
     States(Looking),
     /// Reads the scenario, reports errors, prints what it understood
@@ -82,6 +84,47 @@ pub struct Sweeping {
 }
 
 #[derive(Debug, Args)]
+pub struct Limiting {
+    #[command(flatten)]
+    pub input: Input,
+    #[command(flatten)]
+    pub folder: Folder,
+    #[command(flatten)]
+    pub draws: Draws,
+    /// What to vary: spacing STEP | spacing all | pulse NET [STEP STEP] | period CLOCK | skew STEP |
+    /// lead STEP EDGE | lag STEP EDGE; steps and clock edges by their labels
+    #[arg(long, value_names = ["WHAT", "NAME"], num_args = 2..=4, required = true)]
+    pub of: Vec<String>,
+    /// Least value to try, in the scenario's unit or with one; default chosen from the scenario
+    #[arg(long, value_name = "TIME", allow_hyphen_values = true)]
+    pub from: Option<String>,
+    /// Greatest value to try; default chosen from the scenario
+    #[arg(long, value_name = "TIME", allow_hyphen_values = true)]
+    pub to: Option<String>,
+    /// How close to follow a limit; default 1 fs where all draws are alike, else about a thousandth of the range
+    #[arg(long, value_name = "TIME", conflicts_with = "and")]
+    pub to_within: Option<String>,
+    /// Values of the first scan; default 33, for a map 17 each way
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(2..=1001))]
+    pub points: Option<u32>,
+    /// A second thing to vary, as --of: gives a map of the pairs that pass
+    #[arg(long, value_names = ["WHAT", "NAME"], num_args = 2..=4)]
+    pub and: Vec<String>,
+    /// Least value of the second
+    #[arg(long, value_name = "TIME", requires = "and", allow_hyphen_values = true)]
+    pub and_from: Option<String>,
+    /// Greatest value of the second
+    #[arg(long, value_name = "TIME", requires = "and", allow_hyphen_values = true)]
+    pub and_to: Option<String>,
+    /// Number of threads; default all cores. The results do not depend on it
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
+    pub threads: Option<u16>,
+    /// Exit with 1 if the easy end of the range does not pass; of a map, if no pair passes
+    #[arg(long)]
+    pub strict: bool,
+}
+
+#[derive(Debug, Args)]
 pub struct Running {
     #[command(flatten)]
     pub input: Input,
@@ -89,7 +132,8 @@ pub struct Running {
     pub folder: Folder,
     #[command(flatten)]
     pub draws: Draws,
-    /// Which case: typ, min, max, sample:N, or an instance file
+    /// Which case: typ, min, max, sample:N, one of these with all times moved by single femtoseconds (typ~1 to typ~8,
+    /// sample:N~3), or an instance file
     #[arg(long, value_name = "CASE", default_value = "typ")]
     pub delays: String,
     /// Under this condition of the scenario, in place of its own delays

@@ -12,6 +12,7 @@ use super::args::{Draws, Folder, Input};
 use crate::control::Control;
 use crate::delay::Marginal;
 use crate::engine::Program;
+use crate::limit::LimitError;
 use crate::output::bundle::{self, Bundle};
 use crate::output::text::{Page, Style};
 use crate::reader::{self, Diagnostics, Loaded, ReadError};
@@ -69,6 +70,16 @@ impl From<ReviewError> for Failure {
         match error {
             ReviewError::Contradiction(what) => Failure::Contradiction(what),
             ReviewError::Cancelled => Failure::Interrupted,
+        }
+    }
+}
+
+impl From<LimitError> for Failure {
+    fn from(error: LimitError) -> Failure {
+        match error {
+            LimitError::Bad(what) => Failure::Bad(what),
+            LimitError::Contradiction(what) => Failure::Contradiction(what),
+            LimitError::Cancelled => Failure::Interrupted,
         }
     }
 }

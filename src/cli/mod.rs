@@ -3,6 +3,7 @@
 mod args;
 mod check;
 mod common;
+mod limit;
 mod review;
 mod run;
 mod states;
@@ -29,6 +30,7 @@ pub fn main() -> ExitCode {
         Command::Review(it) => review::run(&it),
         Command::Run(it) => run::run(&it),
         Command::Sweep(it) => sweep::run(&it),
+        Command::Limit(it) => limit::run(&it),
         Command::States(it) => states::run(&it),
         Command::Check(it) => check::run(&it),
     };

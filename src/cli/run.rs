@@ -8,7 +8,7 @@ use super::common::{Failure, called, control, finish, folder, load, options, pag
 use crate::circuit::NetId;
 use crate::delay::Marginal;
 use crate::findings::Asked;
-use crate::instance::Which;
+use crate::instance::{Instance, PERTURBATIONS, Which};
 use crate::output::instance::write_instance;
 use crate::output::{bundle, json, text};
 use crate::reader;
@@ -85,6 +85,11 @@ fn which(text: &str, scenario: &Scenario) -> Result<Which, Failure> {
         "max" => return Ok(Which::Max),
         _ => {}
     }
+    if let Some((case, number)) = text.rsplit_once('~')
+        && (matches!(case, "typ" | "min" | "max") || case.starts_with("sample:"))
+    {
+        return perturbed(text, which(case, scenario)?, number, scenario);
+    }
     if let Some(number) = text.strip_prefix("sample:") {
         let number = number.parse::<u64>().ok().filter(|number| *number < 1 << 62);
         let number = number.ok_or_else(|| {
@@ -99,8 +104,24 @@ fn which(text: &str, scenario: &Scenario) -> Result<Which, Failure> {
     }
     let path = Path::new(text);
     if !path.exists() {
-        let message = format!("`--delays {text}`: there is no such file; write typ, min, max, sample:N or a file");
+        let message = format!(
+            "`--delays {text}`: there is no such file; write typ, min, max, sample:N, one of them with ~P, or a file"
+        );
         return Err(Failure::Bad(message));
     }
     Ok(Which::Given(Box::new(reader::load_instance(path, scenario)?)))
+}
+
+/// A case with every time moved by single femtoseconds.
+fn perturbed(text: &str, case: Which, number: &str, scenario: &Scenario) -> Result<Which, Failure> {
+    let number = number.parse::<u8>().ok().filter(|number| (1..=PERTURBATIONS).contains(number));
+    let number = number.ok_or_else(|| {
+        let message =
+            format!("perturbations are numbered from 1 to {PERTURBATIONS}, as in `--delays {}~1`", case.key());
+        Failure::Bad(format!("`--delays {text}`: {message}"))
+    })?;
+    match Instance::of(scenario, &case).perturbed(scenario, number) {
+        Ok(_) => Ok(Which::Perturbed(Box::new(case), number)),
+        Err(why) => Err(Failure::Bad(format!("`--delays {text}`: its times cannot be moved: {why}"))),
+    }
 }

@@ -6,6 +6,13 @@
 
 use crate::time::Span;
 
+/// Is an involution gate with this time constant and these delays after a long rest causal: e^(−rise/τ) + e^(−fall/τ) < 1?
+/// `tau` is above 0.
+pub fn is_causal(tau: Span, rise: Span, fall: Span) -> bool {
+    let ratio = |delay: Span| libm::exp(-(delay.fs() as f64) / tau.fs() as f64);
+    ratio(rise) + ratio(fall) < 1.0
+}
+
 /// The delay in femtoseconds of an output change, rounded to the nearest; below zero if the change would lie in the
 /// past, `None` if it lies infinitely far there.
 ///

@@ -8,7 +8,7 @@ mod together;
 
 use serde::{Deserialize, Serialize};
 
-pub use involution::{involution, recovered};
+pub use involution::{involution, is_causal, recovered};
 pub use quantile::Marginal;
 pub use together::{Billionths, Group, Together};
 

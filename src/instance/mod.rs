@@ -5,10 +5,12 @@
 
 mod bounces;
 mod groups;
+mod perturb;
 mod quantity;
 mod sampler;
 mod strata;
 
+pub use perturb::{PERTURBATIONS, Perturbed, Unmovable};
 pub use quantity::{Quantities, Quantity, Target};
 pub use sampler::{LAYOUT, Sampler};
 
@@ -61,6 +63,9 @@ pub enum Which {
     Sample(u64),
     /// This very case.
     Given(Box<Instance>),
+    /// Another case with every time moved by single femtoseconds, in the way of this number, from 1 to
+    /// [`PERTURBATIONS`]; see [`Instance::perturbed`].
+    Perturbed(Box<Which>, u8),
 }
 
 impl Which {
@@ -72,10 +77,11 @@ impl Which {
             Which::Max => "max".into(),
             Which::Sample(n) => format!("sample {n}"),
             Which::Given(_) => "given case".into(),
+            Which::Perturbed(which, number) => format!("{}, perturbation {number}", which.words()),
         }
     }
 
-    /// The case as `run --delays` takes it; a given case is a file.
+    /// The case as `run --delays` takes it: `typ`, `sample:12`, `typ~3`; a given case is a file.
     pub fn key(&self) -> String {
         match self {
             Which::Typ => "typ".into(),
@@ -83,6 +89,7 @@ impl Which {
             Which::Max => "max".into(),
             Which::Sample(n) => format!("sample:{n}"),
             Which::Given(_) => "file".into(),
+            Which::Perturbed(which, number) => format!("{}~{number}", which.key()),
         }
     }
 }
@@ -90,10 +97,15 @@ impl Which {
 impl Instance {
     /// The case of a scenario.
     ///
-    /// Runs that begin at random take the start bits of sample 0 for typ, min and max.
+    /// Runs that begin at random take the start bits of sample 0 for typ, min and max. A perturbation of a case that has
+    /// no room to be moved is that case; [`Instance::perturbed`] tells.
     pub fn of(scenario: &Scenario, which: &Which) -> Instance {
         let pick: fn(DelayRange) -> Span = match which {
             Which::Given(instance) => return (**instance).clone(),
+            Which::Perturbed(which, number) => {
+                let instance = Instance::of(scenario, which);
+                return instance.perturbed(scenario, *number).map_or(instance, |it| it.instance);
+            }
             Which::Sample(n) => {
                 let mut instance = Instance::of(scenario, &Which::Typ);
                 Sampler::new(scenario).fill(*n, &mut instance);

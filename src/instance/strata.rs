@@ -41,8 +41,7 @@ impl Strata {
             rng.next_u64()
         };
         let draws = draws.max(1);
-        let bits = (64 - (draws - 1).leading_zeros()).max(2);
-        Strata { draws, half: bits.div_ceil(2), keys: places.map(key).collect() }
+        Strata { draws, half: half_of(draws), keys: places.map(key).collect() }
     }
 
     /// The random number of a quantity in a draw, from the one `u` that an independent draw would take. Draws from `draws`
@@ -55,23 +54,34 @@ impl Strata {
         (low + ((u128::from(u) * (high - low)) >> 64)) as u64
     }
 
-    fn permuted(&self, mut index: u64, key: u64) -> u64 {
-        let mask = (1u64 << self.half) - 1;
-        loop {
-            let (mut left, mut right) = (index >> self.half, index & mask);
-            for round in 0..ROUNDS {
-                (left, right) = (right, left ^ (mix(key ^ mix((round << 56) ^ right)) & mask));
-            }
-            index = (left << self.half) | right;
-            if index < self.draws {
-                return index;
-            }
+    fn permuted(&self, index: u64, key: u64) -> u64 {
+        walk(self.draws, self.half, index, key)
+    }
+}
+
+/// Bits of half a block for a permutation of `0 .. size`.
+pub(super) fn half_of(size: u64) -> u32 {
+    let bits = (64 - (size - 1).leading_zeros()).max(2);
+    bits.div_ceil(2)
+}
+
+/// Where the permutation of `0 .. size` with this key takes an index; `half` is [`half_of`] the size.
+pub(super) fn walk(size: u64, half: u32, mut index: u64, key: u64) -> u64 {
+    let mask = (1u64 << half) - 1;
+    loop {
+        let (mut left, mut right) = (index >> half, index & mask);
+        for round in 0..ROUNDS {
+            (left, right) = (right, left ^ (mix(key ^ mix((round << 56) ^ right)) & mask));
+        }
+        index = (left << half) | right;
+        if index < size {
+            return index;
         }
     }
 }
 
 /// The output function of splitmix64 (Steele, Lea, Flood 2014; from memory).
-fn mix(word: u64) -> u64 {
+pub(super) fn mix(word: u64) -> u64 {
     let mut z = word.wrapping_add(0x9E37_79B9_7F4A_7C15);
     z = (z ^ (z >> 30)).wrapping_mul(0xBF58_476D_1CE4_E5B9);
     z = (z ^ (z >> 27)).wrapping_mul(0x94D0_49BB_1331_11EB);

@@ -22,8 +22,8 @@ const MOST_OUTLINED: usize = 24;
 /// Font size that the backend turns into the small size of pictures: it divides by 1.24.
 const SMALL: f64 = ink::SMALL * 1.24;
 
-type Area<'a> = DrawingArea<SVGBackend<'a>, Shift>;
-type Drawn = Result<(), DrawingAreaErrorKind<std::io::Error>>;
+pub(super) type Area<'a> = DrawingArea<SVGBackend<'a>, Shift>;
+pub(super) type Drawn = Result<(), DrawingAreaErrorKind<std::io::Error>>;
 
 /// Settling-time histograms, one panel a step, at most [`MOST_PANELS`]; the caption names what is left out. Lines mark
 /// median, 99th percentile and the limit from the rules. [`tables::settling`](crate::output::tables::settling) has the
@@ -208,7 +208,7 @@ fn limit(scenario: &Scenario, moment: u32) -> Option<Span> {
 }
 
 /// The unit in which an axis up to `longest` has handy numbers.
-fn fitting(longest: Span, unit: Unit) -> Unit {
+pub(super) fn fitting(longest: Span, unit: Unit) -> Unit {
     let one = unit.femtoseconds();
     if (one..one.saturating_mul(100_000)).contains(&longest.fs()) {
         return unit;
@@ -216,12 +216,12 @@ fn fitting(longest: Span, unit: Unit) -> Unit {
     Unit::ALL.into_iter().rev().find(|it| longest.fs() >= it.femtoseconds()).unwrap_or(Unit::Fs)
 }
 
-fn small() -> TextStyle<'static> {
+pub(super) fn small() -> TextStyle<'static> {
     ("sans-serif", SMALL).into_font().color(&rgb(ink::INK))
 }
 
 /// An ink as the backend takes it.
-fn rgb(ink: &str) -> RGBColor {
+pub(super) fn rgb(ink: &str) -> RGBColor {
     let part = |at: usize| ink.get(at..at + 2).and_then(|hex| u8::from_str_radix(hex, 16).ok()).unwrap_or(0);
     RGBColor(part(1), part(3), part(5))
 }

@@ -48,9 +48,9 @@ pub fn write_instance(instance: &Instance, scenario: &Scenario) -> String {
             Place::Rest(_) => "rest",
             Place::When { .. } => "wait",
         };
-        let skew = match step.skew {
-            Some(_) => format!(", skew = {}", list(instance.skews[s].iter().map(|skew| time(*skew)))),
-            None => String::new(),
+        let skew = match step.skew.is_some() || !instance.skews[s].is_empty() {
+            true => format!(", skew = {}", list(instance.skews[s].iter().map(|skew| time(*skew)))),
+            false => String::new(),
         };
         let bounce = match step.bounce {
             Some(_) => {
@@ -65,7 +65,7 @@ pub fn write_instance(instance: &Instance, scenario: &Scenario) -> String {
         line(format_args!("\n[clocks]"));
     }
     for (clock, case) in stimulus.clocks.iter().zip(&instance.clocks) {
-        let jitter = if clock.jitter == Span::ZERO {
+        let jitter = if clock.jitter == Span::ZERO && case.jitter.is_empty() {
             String::new()
         } else {
             let signed = case.jitter.iter().map(|fs| Decimal::new(i128::from(*fs), scenario.unit));

@@ -95,6 +95,7 @@ pub(super) fn delays(which: &Which) -> String {
     match which {
         Which::Typ | Which::Min | Which::Max => format!("{} delays", which.words()),
         Which::Sample(_) | Which::Given(_) => which.words(),
+        Which::Perturbed(which, number) => format!("{}, perturbation {number}", delays(which)),
     }
 }
 

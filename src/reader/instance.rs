@@ -247,7 +247,8 @@ impl Case<'_> {
             let (mut has_place, mut has_skew, mut has_bounce) = (false, false, false);
             for (key, value) in table.iter() {
                 match key.get_ref().as_ref() {
-                    "skew" if skewed => {
+                    // a case may move the inputs of any step apart
+                    "skew" => {
                         has_skew = true;
                         skews[s] = self.skew(walk, value, steps[s].set.len());
                     }
@@ -265,7 +266,6 @@ impl Case<'_> {
                         walk.fault(key.span(), message, format!("the scenario places it by `{placed}`"));
                         has_place = true;
                     }
-                    "skew" => walk.fault(key.span(), format!("step `{label}` has no skew"), "remove it"),
                     "bounce" => walk.fault(key.span(), format!("step `{label}` does not bounce"), "remove it"),
                     _ => walk.unknown_key(key, &[placed, "skew", "bounce"], &format!("step `{label}`")),
                 }
@@ -398,15 +398,16 @@ impl Case<'_> {
         let place = format!("clock `{name}`");
         let jitters = clock.jitter > Span::ZERO;
         let keys = ["first", "period", "high"];
-        let others: &[&str] = if jitters { &["jitter"] } else { &[] };
-        let [first, period, high] = self.figures(walk, (table, span.clone()), keys, others, &place);
+        let [first, period, high] = self.figures(walk, (table, span.clone()), keys, &["jitter"], &place);
         let edges = 2 * clock.count as usize;
         let mut jitter = Vec::new();
-        if jitters {
-            let Some((_, value)) = table.iter().find(|(key, _)| key.get_ref() == "jitter") else {
-                walk.missing(span, "jitter", &place, "[0.2, -0.1]");
-                return None;
-            };
+        let given = table.iter().find(|(key, _)| key.get_ref() == "jitter");
+        if jitters && given.is_none() {
+            walk.missing(span, "jitter", &place, "[0.2, -0.1]");
+            return None;
+        }
+        // a case may move the edges of any clock
+        if let Some((_, value)) = given {
             let help = format!("write one time for each of its {edges} edges");
             let list = walk.list(value, "a list of times", &help)?;
             if list.len() != edges {

@@ -7,6 +7,7 @@ mod departure;
 mod paths;
 mod report;
 mod single;
+mod ties;
 mod verdict;
 mod why;
 
@@ -16,12 +17,12 @@ pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, comp
 pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
+pub use verdict::{grouped, verdict, without_draws};
 pub use why::{Away, Needs, Pull, Why};
-pub use verdict::{grouped, verdict, with_typical};
 
 use crate::circuit::NetId;
 use crate::control::Control;
-use crate::engine::Program;
+use crate::engine::{Program, Trace};
 use crate::findings::{Asked, Kind, RuleKey};
 use crate::flow::FlowError;
 use crate::instance::Which;
@@ -53,8 +54,10 @@ impl From<FlowError> for ReviewError {
 }
 
 /// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
-/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows. Then
-/// the same for every condition of the scenario. A cancelled sweep concludes from what was complete.
+/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows; so
+/// are typical, min and max runs. What only these show is a finding, too, and what exactly equal times have to do with
+/// findings is looked into. Then the same for every condition of the scenario. A cancelled sweep concludes from what was
+/// complete.
 pub fn sweep(
     scenario: &Scenario,
     program: &Program,
@@ -62,13 +65,16 @@ pub fn sweep(
     threads: usize,
     control: &Control,
 ) -> Result<SweepReport, ReviewError> {
-    let mut report = sweep_one(scenario, program, asked, threads, control)?;
+    let (mut report, runs) = sweep_one(scenario, program, asked, threads, control)?;
+    for (which, trace) in &runs {
+        contained::run(scenario, &format!("the {} run", which.words()), trace, &Control::default())?;
+    }
     for condition in &scenario.conditions {
         let under = scenario.under(condition);
         // where a run may begin does not depend on delays
         let program = Program::new(&under, &Control::default())
             .map_err(|_| ReviewError::Contradiction(format!("under condition {} no start is found", condition.name)))?;
-        let sweep = sweep_one(&under, &program, asked, threads, control)?;
+        let (sweep, _) = sweep_one(&under, &program, asked, threads, control)?;
         report.conditions.push(ConditionReport { condition: condition.clone(), sweep });
     }
     Ok(report)
@@ -80,9 +86,9 @@ fn sweep_one(
     asked: &Asked,
     threads: usize,
     control: &Control,
-) -> Result<SweepReport, ReviewError> {
+) -> Result<(SweepReport, Vec<(Which, Trace)>), ReviewError> {
     let tally = run_samples(scenario, program, asked, 0..scenario.plan.samples, threads, control);
-    let report = conclude(scenario, asked, &tally);
+    let mut report = conclude(scenario, asked, &tally);
     for window in &report.windows {
         for outcome in window.outcomes.iter().filter(|outcome| !outcome.state.has_unknown()) {
             if !statics::is_stable(&scenario.circuit, &outcome.state) {
@@ -95,7 +101,8 @@ fn sweep_one(
         }
     }
     contained::sweep(scenario, &tally, &Control::default())?;
-    Ok(report)
+    let runs = ties::look(scenario, program, asked, &tally, &mut report, control)?;
+    Ok((report, runs))
 }
 
 /// The main job: stable states, typical run, sweep, failing cases, verdict.
@@ -110,23 +117,28 @@ pub fn review(
     let asked = Asked::of(scenario);
     let states = states(scenario, control)?;
     let typical = run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?;
-    contained::run(scenario, "the typical run", &typical.trace, control)?;
     let sweep = sweep(scenario, program, &asked, threads, control)?;
     let mut shown = Vec::new();
     for index in to_show(&asked, &sweep) {
         let finding = &sweep.findings[index];
-        let Some(sample) = finding.worst_sample.or(finding.sample) else { continue };
-        let Some(run) = run_one(scenario, program, &asked, Which::Sample(sample), control) else { continue };
+        let Some(which) = finding.shown_by() else { continue };
+        let Some(run) = run_one(scenario, program, &asked, which, control) else { continue };
         let race = matches!(finding.subject.kind, Kind::CriticalRace | Kind::NonCriticalRace);
         if !race && !run.facts.iter().any(|fact| fact.subject == finding.subject) {
             let kind = finding.subject.kind.word();
-            return Err(ReviewError::Contradiction(format!("sample {sample} run alone does not show its {kind}")));
+            let case = run.which.words();
+            return Err(ReviewError::Contradiction(format!("{case} run alone does not show its {kind}")));
         }
         shown.push((index, run));
     }
+<<<<<<< HEAD
     let verdict = with_typical(scenario, &sweep, &typical, verdict(scenario, &sweep));
     let mut why = vec![None; sweep.findings.len()];
     paths::fill_races(scenario, program, &asked, &sweep, &shown, &mut why, control);
+=======
+    let verdict = verdict(scenario, &sweep);
+    let why = vec![None; sweep.findings.len()];
+>>>>>>> main
     Ok(Review { asked, states, typical: Some(typical), sweep, shown, why, verdict })
 }
 

@@ -4,12 +4,13 @@ use std::collections::BTreeMap;
 
 use super::conditions::{by_condition, together};
 use super::departure::departure_words;
-use super::report::{Call, RunReport, Verdict};
+use super::report::{Call, Verdict};
 use crate::circuit::NetId;
 use crate::delay::Marginal;
-use crate::findings::{Against, Fact, Kind, Question, Reason, RuleKey, Subject};
+use crate::findings::{Against, Kind, Question, Reason, RuleKey, Subject};
+use crate::instance::Which;
 use crate::scenario::Scenario;
-use crate::sweep::{Finding, RuleReport, SweepReport};
+use crate::sweep::{Finding, RuleReport, SweepReport, Tie};
 
 /// The verdict of a sweep, of all its conditions together.
 pub fn verdict(scenario: &Scenario, sweep: &SweepReport) -> Verdict {
@@ -41,30 +42,6 @@ pub(super) fn of_one(scenario: &Scenario, sweep: &SweepReport) -> Verdict {
     }
     let reasons = broken.into_iter().chain(open).collect();
     Verdict { call, sentence, reasons }
-}
-
-/// Adds what only the typical run shows to the verdict of its sweep. Whether such a breach is more than a tie of exactly
-/// equal delays is not known, so no verdict is better than undecided.
-pub fn with_typical(scenario: &Scenario, sweep: &SweepReport, typical: &RunReport, verdict: Verdict) -> Verdict {
-    let drawn = |fact: &Fact| sweep.findings.iter().any(|it| it.subject == fact.subject && it.breaks_rule);
-    let only = typical.facts.iter().filter(|fact| fact.breaks_rule && !drawn(fact)).map(|fact| {
-        let rule = fact.subject.question.and_then(|q| sweep.rules.get(q as usize));
-        let what =
-            what(scenario, &fact.subject, rule.map(|rule| &rule.question), typical.against(fact).map(|it| (it, false)));
-        format!("with typical delays, but in no draw: {what} (exactly equal delays?)")
-    });
-    let only: Vec<String> = only.collect();
-    let Verdict { call, sentence, mut reasons } = verdict;
-    match (only.first(), call) {
-        (Some(first), Call::NoFailureFound | Call::Proved) => {
-            let sentence = format!("undecided: {first}; {sentence}");
-            Verdict { call: Call::Undecided, sentence, reasons: only }
-        }
-        _ => {
-            reasons.extend(only);
-            Verdict { call, sentence, reasons }
-        }
-    }
 }
 
 fn draws_word(draw: Marginal, n: u64) -> &'static str {
@@ -129,12 +106,29 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
         rule.map(|rule| &rule.question),
         finding.against.as_ref().map(|it| (it, finding.count > 1)),
     );
+    if let Some(case) = finding.case.as_deref().filter(|_| finding.count == 0) {
+        return format!("{what} in no draw, {}", without_draws(case, finding.tie));
+    }
+    let equal = if finding.tie == Some(Tie::Vanishes) { " (only with exactly equal times)" } else { "" };
     // a rule for the whole run may break after several steps: its share is that of the rule
     match rule.filter(|rule| rule.question.moment.is_none() && rule.broken > finding.count) {
         Some(rule) => {
-            format!("{what} and elsewhere in {} of {} draws", grouped(rule.broken), grouped(rule.judged))
+            format!("{what} and elsewhere in {} of {} draws{equal}", grouped(rule.broken), grouped(rule.judged))
         }
-        None => format!("{what} in {} of {} draws", grouped(finding.count), grouped(finding.of)),
+        None => format!("{what} in {} of {} draws{equal}", grouped(finding.count), grouped(finding.of)),
+    }
+}
+
+/// What shows something that no draw shows.
+pub fn without_draws(case: &Which, tie: Option<Tie>) -> String {
+    let delays = match case {
+        Which::Typ | Which::Min | Which::Max => format!("{} delays", case.words()),
+        _ => case.words(),
+    };
+    match tie {
+        Some(Tie::Appears) => "only when times are moved by single femtoseconds".to_string(),
+        Some(Tie::Vanishes) => format!("but with {delays} (only with exactly equal times)"),
+        None => format!("but with {delays}"),
     }
 }
 
@@ -208,6 +202,9 @@ fn open(scenario: &Scenario, sweep: &SweepReport) -> Vec<String> {
         unsettled.push(format!("\"{label}\" did not settle before the limit {hits} in {draws} draws"));
     }
     reasons.extend(unsettled);
+    for finding in sweep.findings.iter().filter(|it| it.subject.kind == Kind::Unsettled && it.count == 0) {
+        reasons.push(sentence(scenario, finding, None));
+    }
     for finding in sweep.findings.iter().filter(|finding| finding.subject.kind == Kind::Unresolved) {
         reasons.push(format!("a settled state with an X: {}", sentence(scenario, finding, None)));
     }

@@ -2,7 +2,9 @@
 
 use std::collections::{BTreeMap, BTreeSet};
 
-use super::report::{AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, WindowReport, Worst};
+use super::report::{
+    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, TiesSought, WindowReport, Worst,
+};
 use super::seen::Count;
 use super::spread::{self, Spread};
 use super::stats::{clopper_pearson, none_in};
@@ -85,10 +87,7 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
             findings.push(judging.finding(kind, &fact(strays, false), race.of));
         }
     }
-    findings.sort_by(|a, b| {
-        let key = |f: &Finding| (!f.breaks_rule, f.subject.kind, std::cmp::Reverse(f.count), f.subject);
-        key(a).cmp(&key(b))
-    });
+    worst_first(&mut findings);
     for rule in &mut rules {
         rule.at_most = judging.rule_at_most(rule);
     }
@@ -104,7 +103,23 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
         unseen,
         unseen_untold,
         conditions: Vec::new(),
+        ties: TiesSought::default(),
     }
+}
+
+/// Puts findings in the order of a report: rule breakers before others, by kind, by count.
+pub fn worst_first(findings: &mut [Finding]) {
+    findings.sort_by(|a, b| {
+        let key = |f: &Finding| (!f.breaks_rule, f.subject.kind, std::cmp::Reverse(f.count), f.subject);
+        key(a).cmp(&key(b))
+    });
+}
+
+/// Would a race that leads from one state at rest to these settled states, without X, break a rule at this moment?
+pub fn race_breaks(scenario: &Scenario, moment: u32, outcomes: &BTreeSet<&State>) -> bool {
+    let states: Vec<&State> = outcomes.iter().copied().collect();
+    let forbidden = scenario.rules.critical_race == Permission::Forbidden;
+    states.len() > 1 && forbidden && !each_has_its_own(&states, &expected(scenario, moment))
 }
 
 /// What the samples of one moment did from each state before, beyond the commonest.

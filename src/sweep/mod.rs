@@ -9,10 +9,10 @@ mod stats;
 mod tally;
 mod unseen;
 
-pub use conclude::conclude;
+pub use conclude::{conclude, race_breaks, worst_first};
 pub use report::{
-    AtMost, Boards, Cause, ConditionReport, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, WindowReport,
-    Worst,
+    AtMost, Boards, Cause, ConditionReport, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, TiesSought,
+    Unmoved, WindowReport, Worst,
 };
 pub use run::run_samples;
 pub use stats::{clopper_pearson, none_in};

@@ -2,7 +2,7 @@
 
 use crate::engine::Hit;
 use crate::findings::{Against, Kind, Measure, Question, Reason, Subject};
-use crate::instance::Which;
+use crate::instance::{Unmovable, Which};
 use crate::logic::State;
 use crate::scenario::{Condition, Plan};
 use crate::time::Span;
@@ -32,6 +32,32 @@ pub struct SweepReport {
     pub unseen_untold: u64,
     /// The same draws under each condition of the scenario; empty within one.
     pub conditions: Vec<ConditionReport>,
+    /// How far exactly equal times were looked for.
+    pub ties: TiesSought,
+}
+
+/// How far exactly equal times were looked for: of which cases and findings it is not known what they have to do with a
+/// finding.
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
+pub struct TiesSought {
+    /// All cases were run that were to be: typical, min and max, first samples, and their perturbations. If not, no
+    /// finding has a tie.
+    pub done: bool,
+    /// Cases whose times could not be moved.
+    pub unmoved: Option<Unmoved>,
+    /// Findings whose first sample was left out, since there were too many.
+    pub left_out: u64,
+}
+
+/// Cases whose times could not be moved.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Unmoved {
+    /// How many: typical, min and max count, and each first sample of a finding.
+    pub cases: u64,
+    /// The first of them.
+    pub first: Which,
+    /// Why it could not.
+    pub why: Unmovable,
 }
 
 /// A sweep under one condition of temperature and supply.
@@ -171,6 +197,14 @@ pub struct Finding {
     pub case: Option<Box<Which>>,
 }
 
+impl Finding {
+    /// The case that shows it worst: a sample, or what shows it where no draw does.
+    pub fn shown_by(&self) -> Option<Which> {
+        let sample = self.worst_sample.or(self.sample).map(Which::Sample);
+        sample.or_else(|| self.case.as_deref().cloned())
+    }
+}
+
 /// A finding by boards.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Boards {
@@ -234,8 +268,8 @@ impl Worst {
 /// What exact equality of times has to do with a finding.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Tie {
-    /// Gone when delays are moved by single femtoseconds.
+    /// Gone in all cases in which times were moved by single femtoseconds.
     Vanishes,
-    /// Seen only when delays are moved by single femtoseconds.
+    /// Seen only when times are moved by single femtoseconds.
     Appears,
 }

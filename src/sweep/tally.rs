@@ -156,6 +156,8 @@ struct PartBoard {
 pub struct Tally {
     /// Samples in it.
     pub samples: u64,
+    /// Samples that broke a rule by themselves; a race is a difference between samples and counts in none.
+    pub failing: u64,
     /// One a moment.
     pub windows: Vec<WindowTally>,
     /// One a question.
@@ -169,6 +171,8 @@ pub struct Tally {
     part_boards: BTreeMap<u64, PartBoard>,
     #[serde(skip)]
     sample: u64,
+    #[serde(skip)]
+    has_failed: bool,
     #[serde(skip)]
     board: Option<u64>,
 }
@@ -316,6 +320,7 @@ impl Tally {
     pub fn new(scenario: &Scenario, asked: &Asked) -> Tally {
         Tally {
             samples: 0,
+            failing: 0,
             windows: scenario.stimulus.moments.iter().map(|_| WindowTally::new()).collect(),
             rows: vec![RowTally::default(); asked.questions.len()],
             facts: BTreeMap::new(),
@@ -324,6 +329,7 @@ impl Tally {
             tries: scenario.plan.tries,
             part_boards: BTreeMap::new(),
             sample: 0,
+            has_failed: false,
             board: None,
         }
     }
@@ -331,6 +337,7 @@ impl Tally {
     /// The next answers are those of this sample. Samples of one tally come in rising order.
     pub fn begin(&mut self, sample: u64) {
         self.sample = sample;
+        self.has_failed = false;
         self.samples += 1;
         if self.tries > 1 {
             let board = sample / self.tries;
@@ -372,6 +379,7 @@ impl Tally {
     /// Adds the finished tally of other samples of the same sweep.
     pub fn merge(&mut self, other: &Tally) {
         self.samples += other.samples;
+        self.failing += other.failing;
         for (ours, theirs) in self.windows.iter_mut().zip(&other.windows) {
             ours.merge(theirs);
         }
@@ -411,6 +419,9 @@ impl Sink for Tally {
     }
 
     fn fact(&mut self, fact: Fact) {
+        if fact.breaks_rule && !std::mem::replace(&mut self.has_failed, true) {
+            self.failing += 1;
+        }
         let tally = self.facts.entry(fact.subject).or_insert_with(|| FactTally::new(fact.breaks_rule));
         tally.count += 1;
         tally.first = tally.first.min(self.sample);

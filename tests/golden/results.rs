@@ -7,7 +7,8 @@ use stillgate::logic::{Bits, State, Value};
 use stillgate::review::{Call, Review, StatesReport, Verdict, Why};
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{
-    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, UnseenMass, WindowReport, Worst,
+    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass, WindowReport,
+    Worst,
 };
 use stillgate::time::{Span, Time};
 
@@ -133,6 +134,7 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
     let mut appears = finding(Kind::Oscillation, None, 3, 0);
     (appears.share, appears.interval, appears.sample, appears.worst_sample) = (None, None, None, None);
     appears.tie = Some(Tie::Appears);
+    appears.case = Some(Box::new(Which::Perturbed(Box::new(Which::Typ), 3)));
     let mut late = finding(Kind::SettleWithin, Some(upper), 0, 1);
     late.subject.question = asked.find(RuleKey::SettleWithin, 0, Some(upper), Some(0));
     late.worst = Some(Worst::Time(ns("21.9")));
@@ -161,6 +163,7 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
         unseen: Some(UnseenMass { moment: 3, once: 120, of: 10_000, estimate: 0.012, upper: 0.112 }),
         unseen_untold: 0,
         conditions: Vec::new(),
+        ties: TiesSought { done: true, ..TiesSought::default() },
     }
 }
 
@@ -255,5 +258,6 @@ pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
         unseen: None,
         unseen_untold: 0,
         conditions: Vec::new(),
+        ties: TiesSought::default(),
     }
 }

@@ -7,6 +7,7 @@
 
 mod check;
 mod flow;
+mod limit;
 mod parts;
 mod races;
 mod review;
@@ -15,6 +16,7 @@ mod states;
 mod sweep;
 
 pub use check::check;
+pub use limit::{limit, limit_map};
 pub use review::review;
 pub use run::run;
 pub use states::states;

@@ -8,7 +8,7 @@ use crate::findings::Asked;
 use crate::output::words::{self, six};
 use crate::review::{Verdict, Why, by_condition};
 use crate::scenario::Scenario;
-use crate::sweep::{Finding, RuleReport, Settling, SweepReport, WindowReport};
+use crate::sweep::{Finding, RuleReport, Settling, SweepReport, TiesSought, WindowReport};
 
 #[derive(Serialize)]
 pub(super) struct Sweep<'a> {
@@ -25,6 +25,7 @@ pub(super) struct Sweep<'a> {
     failures_at_most: Option<OneLine<AtMost>>,
     unseen_mass: Option<OneLine<Unseen<'a>>>,
     unseen_untold: u64,
+    ties: OneLine<Ties>,
     #[serde(skip_serializing_if = "Option::is_none")]
     conditions: Option<Vec<Condition<'a>>>,
     #[serde(skip_serializing_if = "Option::is_none")]
@@ -103,6 +104,7 @@ struct Found<'a> {
     tie: Option<&'static str>,
     sample: Option<u64>,
     worst_sample: Option<u64>,
+    case: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
     /// Absent where nobody looked for it.
@@ -138,6 +140,16 @@ struct AtMost {
     what: &'static str,
     level: f64,
     side: &'static str,
+}
+
+/// How far exactly equal times were looked for.
+#[derive(Serialize)]
+struct Ties {
+    looked_for: bool,
+    cases_not_moved: u64,
+    first_not_moved: Option<String>,
+    why_not_moved: Option<String>,
+    findings_left_out: u64,
 }
 
 #[derive(Serialize)]
@@ -193,6 +205,7 @@ impl<'a> Sweep<'a> {
                 })
             }),
             unseen_untold: report.unseen_untold,
+            ties: ties(&report.ties),
             conditions: Some(conditions),
             races_not_looked_for: None,
         }
@@ -206,6 +219,17 @@ impl<'a> Sweep<'a> {
         self.races_not_looked_for = Some(why.iter().filter(|why| why.is_none()).count());
         self
     }
+}
+
+fn ties(sought: &TiesSought) -> OneLine<Ties> {
+    let unmoved = sought.unmoved.as_ref();
+    OneLine(Ties {
+        looked_for: sought.done,
+        cases_not_moved: unmoved.map_or(0, |it| it.cases),
+        first_not_moved: unmoved.map(|it| it.first.key()),
+        why_not_moved: unmoved.map(|it| it.why.to_string()),
+        findings_left_out: sought.left_out,
+    })
 }
 
 fn window<'a>(scenario: &'a Scenario, report: &WindowReport) -> Window<'a> {
@@ -291,6 +315,7 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         tie: finding.tie.map(words::tie),
         sample: finding.sample,
         worst_sample: finding.worst_sample,
+        case: finding.case.as_ref().map(|case| case.key()),
         reference: finding.against.as_ref().map(|it| Departed::of(scenario, it)),
         race: None,
     }

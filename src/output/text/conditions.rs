@@ -6,7 +6,7 @@ use super::paper::{Paper, Table, Tone};
 use super::rules;
 use crate::findings::Asked;
 use crate::output::words;
-use crate::review::{Call, Cell, Compared, compare};
+use crate::review::{Call, Cell, Compared, compare, without_draws};
 use crate::scenario::Scenario;
 use crate::sweep::SweepReport;
 use crate::time::rounded;
@@ -61,12 +61,14 @@ fn only(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, asked: &Asked, 
     let only: Vec<_> = all.filter(|(_, found)| found.breaks_rule && !nominal(found.subject)).collect();
     for (condition, finding) in only.iter().take(MOST) {
         let name = &condition.condition.name;
-        let (count, of) = (words::count(finding.count), words::count(finding.of));
-        let text =
-            format!("only under condition {name}: {}: {count} of {of} draws", about(scenario, asked, &finding.subject));
+        let seen = match finding.case.as_deref().filter(|_| finding.count == 0) {
+            Some(case) => format!("in no draw, {}", without_draws(case, finding.tie)),
+            None => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
+        };
+        let text = format!("only under condition {name}: {}: {seen}", about(scenario, asked, &finding.subject));
         paper.item(Tone::Bad, &text);
-        if let Some(sample) = finding.worst_sample.or(finding.sample) {
-            paper.whole(4, &page.replay(sample, Some(name)));
+        if let Some(case) = finding.shown_by() {
+            paper.whole(4, &page.replay(&case, Some(name)));
         }
     }
     super::more(paper, only.len().saturating_sub(MOST), "findings.csv");

@@ -2,9 +2,15 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
+<<<<<<< HEAD
 use crate::findings::{Against, Asked, Kind, RacePair, RuleKey, Subject};
 use crate::output::{races, words};
 use crate::review::{Why, departure_words};
+=======
+use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
+use crate::output::words;
+use crate::review::{departure_words, without_draws};
+>>>>>>> main
 use crate::scenario::Scenario;
 use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
@@ -18,7 +24,7 @@ const FEW: usize = 2;
 const LISTED: usize = 3;
 
 /// What a finding is about: `glitch static-0, open_lower, step together`.
-pub(super) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
+pub(in crate::output) fn about(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
     let named = words::subject(scenario, asked, subject);
     let mut text = named.kind.to_string();
     if wants_oscillation(asked, subject) {
@@ -65,9 +71,9 @@ pub(super) fn worst(kind: Kind, worst: Worst) -> String {
 
 /// How often, how surely, how bad.
 fn figures(finding: &Finding) -> String {
-    let mut text = match (finding.tie, finding.count) {
-        (Some(Tie::Appears), 0) => "in no draw; only when delays are moved by single femtoseconds".to_string(),
-        _ => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
+    let mut text = match finding.case.as_deref().filter(|_| finding.count == 0) {
+        Some(case) => format!("in no draw, {}", without_draws(case, finding.tie)),
+        None => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
     };
     if let Some(share) = finding.share {
         text += &format!(", {}", words::percent(share));
@@ -92,8 +98,8 @@ fn figures(finding: &Finding) -> String {
     if let Some(value) = finding.worst {
         text += &format!("; {}", worst(finding.subject.kind, value));
     }
-    if finding.tie == Some(Tie::Vanishes) {
-        text += "; gone when delays are moved by single femtoseconds (exactly equal times)";
+    if finding.tie == Some(Tie::Vanishes) && finding.count > 0 {
+        text += "; gone when times are moved by single femtoseconds (exactly equal times)";
     }
     text
 }
@@ -207,9 +213,14 @@ pub(super) fn findings(
                 let first = if finding.count > 1 { "the first: " } else { "" };
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
             }
+<<<<<<< HEAD
             race(paper, page, scenario, of(finding), &mut told);
             if let Some(sample) = finding.worst_sample.or(finding.sample) {
                 paper.whole(4, &page.replay(sample, None));
+=======
+            if let Some(case) = finding.shown_by() {
+                paper.whole(4, &page.replay(&case, None));
+>>>>>>> main
             }
         }
         super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");

@@ -7,6 +7,7 @@ mod check;
 mod conditions;
 mod findings;
 mod flow;
+mod limit;
 mod notes;
 mod paper;
 mod review;
@@ -16,13 +17,18 @@ mod states;
 mod steps;
 mod sure;
 mod sweep;
+mod ties;
 
 pub use check::check;
+pub(super) use findings::about;
+pub use limit::{limit, limit_map};
 pub use paper::Style;
 pub use review::review;
 pub use run::run;
 pub use states::states;
 pub use sweep::sweep;
+
+use crate::instance::Which;
 
 /// How and for whom a text is written.
 #[derive(Clone, Copy, Debug)]
@@ -48,6 +54,7 @@ impl Page<'_> {
         paper::Paper::new(self.style, self.width)
     }
 
+<<<<<<< HEAD
     /// Columns that a text takes.
     fn columns(&self) -> usize {
         paper::columns(self.width)
@@ -55,9 +62,13 @@ impl Page<'_> {
 
     /// The command that replays a sample, under a condition if one is named.
     fn replay(&self, sample: u64, condition: Option<&str>) -> String {
+=======
+    /// The command that replays a case, under a condition if one is named.
+    fn replay(&self, case: &Which, condition: Option<&str>) -> String {
+>>>>>>> main
         let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
         let condition = condition.map_or_else(String::new, |name| format!(" --condition {}", in_a_shell(name)));
-        format!("stillgate run{scenario}{}{condition} --delays sample:{sample}", self.options)
+        format!("stillgate run{scenario}{}{condition} --delays {}", self.options, case.key())
     }
 }
 

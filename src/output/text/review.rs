@@ -2,7 +2,7 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use super::{conditions, findings, flow, notes, rules, steps, sure};
+use super::{conditions, findings, flow, notes, rules, steps, sure, ties};
 use crate::output::words;
 use crate::review::{Call, Review, Verdict, Why};
 use crate::scenario::Scenario;
@@ -64,6 +64,7 @@ pub(super) fn body(
     conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
     sure::sure(paper, report);
+    ties::ties(paper, report);
     rules::not_judged(paper, scenario, report);
     rules::margins(paper, scenario, report);
 }

@@ -7,7 +7,7 @@ use super::circuit::Network;
 use super::context::{Context, Fraction, Least, name_list};
 use super::said::{NewDelay, NewFilter, NewGroup, NewRange, Said};
 use crate::circuit::{Function, GateId};
-use crate::delay::{Billionths, DelayModel, DelayRange, Filter, Group, Together};
+use crate::delay::{Billionths, DelayModel, DelayRange, Filter, Group, Together, is_causal};
 use crate::scenario::{Fault, Mark, nearest};
 use crate::time::Span;
 
@@ -171,10 +171,9 @@ fn filter_of(context: &mut Context<'_>, said: &Said<NewFilter>, ranges: [DelayRa
         }
         NewFilter::Involution(tau) => {
             let Some(span) = context.span(tau) else { return Filter::Inertial };
-            let ratio = |delay: Span| libm::exp(-(delay.fs() as f64) / span.fs() as f64);
             if span == Span::ZERO {
                 context.faults.add(tau.mark, "a time constant of 0 is not possible", "write some time above 0");
-            } else if ratio(rise) + ratio(fall) >= 1.0 {
+            } else if !is_causal(span, rise, fall) {
                 let message = format!(
                     "this involution is not causal: tau = {} is too long for the least rise {} and fall {}",
                     context.show(span),
