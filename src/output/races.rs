@@ -17,7 +17,7 @@ const DECIMALS: u32 = 4;
 pub(super) fn lines(scenario: &Scenario, pair: &RacePair, width: usize) -> Vec<String> {
     let alike = pair.second.as_ref().is_none_or(|it| (it.from, it.at) == (pair.first.from, pair.first.at));
     let meet = pair.meet.filter(|_| pair.second.is_some());
-    let meet = meet.map_or_else(String::new, |net| format!("; they meet at {}", words::net(scenario, net)));
+    let meet = meet.map_or_else(String::new, |net| format!("; meet at {}", words::net(scenario, net)));
     let tail = |path: &Path| beginning(scenario, path, alike);
     let first = line(scenario, &pair.first, "A", &tail(&pair.first), width);
     let second = pair.second.as_ref().map(|path| {
@@ -82,14 +82,16 @@ fn leg_words(scenario: &Scenario, leg: &Leg, delay: &str) -> String {
     }
 }
 
-/// What a path begins with, and, if the other one begins with something else, from when to when it lasts.
+/// What a path begins with, and when, if the other one begins with something else.
 fn beginning(scenario: &Scenario, path: &Path, alike: bool) -> String {
     let unit = scenario.unit;
-    let time = |at: crate::time::Time| fixed(at.from_start(), unit, decimals(path, unit));
     let when = match alike {
         true => String::new(),
-        false if path.legs.is_empty() => format!(" at {} {unit}", time(path.at)),
-        false => format!(" at {} to {} {unit}", time(path.at), time(path.end())),
+        false => {
+            let at = path.at.from_start();
+            let whole = at.fs() % unit.femtoseconds() == 0;
+            format!(" at {} {unit}", fixed(at, unit, if whole { 0 } else { decimals(path, unit) }))
+        }
     };
     match path.from {
         None => format!(", from power-up{when}"),

@@ -131,14 +131,9 @@ pub fn review(
         }
         shown.push((index, run));
     }
-<<<<<<< HEAD
-    let verdict = with_typical(scenario, &sweep, &typical, verdict(scenario, &sweep));
+    let verdict = verdict(scenario, &sweep);
     let mut why = vec![None; sweep.findings.len()];
     paths::fill_races(scenario, program, &asked, &sweep, &shown, &mut why, control);
-=======
-    let verdict = verdict(scenario, &sweep);
-    let why = vec![None; sweep.findings.len()];
->>>>>>> main
     Ok(Review { asked, states, typical: Some(typical), sweep, shown, why, verdict })
 }
 

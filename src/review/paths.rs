@@ -45,8 +45,7 @@ pub(super) fn fill_races(
             continue;
         }
         *left -= 1;
-        let case = finding.worst_sample.or(finding.sample).map(Which::Sample);
-        let Some(case) = case.or_else(|| finding.case.as_deref().cloned()) else { continue };
+        let Some(case) = finding.shown_by() else { continue };
         let kept = shown.iter().find(|it| it.0 == index).map(|it| it.1.clone());
         let Some(failing) = kept.or_else(|| run(case)) else { continue };
         let race = race_of(scenario, asked, sweep, finding, &failing, run);

@@ -2,21 +2,17 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-<<<<<<< HEAD
 use crate::findings::{Against, Asked, Kind, RacePair, RuleKey, Subject};
 use crate::output::{races, words};
-use crate::review::{Why, departure_words};
-=======
-use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
-use crate::output::words;
-use crate::review::{departure_words, without_draws};
->>>>>>> main
+use crate::review::{Why, departure_words, without_draws};
 use crate::scenario::Scenario;
 use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
 /// Most findings told in full.
 const FULL: usize = 5;
-/// Lines that one of two paths takes, at most.
+/// Of how many of them the paths that race are told; the JSON has all.
+const TOLD: usize = 3;
+/// Lines that a path of the first finding takes, at most; those of others are cut to one.
 const LINES: usize = 2;
 /// With more findings that break a rule than this, paths of others are told in the JSON only.
 const FEW: usize = 2;
@@ -183,7 +179,8 @@ fn race<'a>(
     if let Some(before) = before {
         return paper.say(4, Tone::Plain, &format!("The paths that race are those of {}.", before + 1));
     }
-    for line in races::lines(scenario, pair, LINES * (page.columns() - 8)) {
+    let width = if told.len() == 1 { LINES * (page.columns() - 8) } else { page.columns() - 4 };
+    for line in races::lines(scenario, pair, width) {
         paper.hang(4, 6, Tone::Plain, &line);
     }
 }
@@ -213,14 +210,11 @@ pub(super) fn findings(
                 let first = if finding.count > 1 { "the first: " } else { "" };
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
             }
-<<<<<<< HEAD
-            race(paper, page, scenario, of(finding), &mut told);
-            if let Some(sample) = finding.worst_sample.or(finding.sample) {
-                paper.whole(4, &page.replay(sample, None));
-=======
+            if i < TOLD {
+                race(paper, page, scenario, of(finding), &mut told);
+            }
             if let Some(case) = finding.shown_by() {
                 paper.whole(4, &page.replay(&case, None));
->>>>>>> main
             }
         }
         super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");

@@ -54,18 +54,13 @@ impl Page<'_> {
         paper::Paper::new(self.style, self.width)
     }
 
-<<<<<<< HEAD
     /// Columns that a text takes.
     fn columns(&self) -> usize {
         paper::columns(self.width)
     }
 
-    /// The command that replays a sample, under a condition if one is named.
-    fn replay(&self, sample: u64, condition: Option<&str>) -> String {
-=======
     /// The command that replays a case, under a condition if one is named.
     fn replay(&self, case: &Which, condition: Option<&str>) -> String {
->>>>>>> main
         let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
         let condition = condition.map_or_else(String::new, |name| format!(" --condition {}", in_a_shell(name)));
         format!("stillgate run{scenario}{}{condition} --delays {}", self.options, case.key())
