@@ -19,16 +19,22 @@ pub(super) struct Groups {
     commons: Vec<u64>,
 }
 
+/// For each gate its group.
+pub(super) fn groups_of(delays: &DelayModel) -> Vec<Option<u32>> {
+    let mut group_of = vec![None; delays.gate.len()];
+    for (number, group) in delays.groups.iter().enumerate() {
+        group.gates.iter().for_each(|gate| group_of[gate.index()] = Some(number as u32));
+    }
+    group_of
+}
+
 impl Groups {
     /// `gates` are those that the quantities of the board's plan belong to, `None` for what is no gate delay.
     pub fn new(delays: &DelayModel, gates: impl Iterator<Item = Option<u32>>) -> Groups {
         if delays.groups.is_empty() {
             return Groups::default();
         }
-        let mut group_of = vec![None; delays.gate.len()];
-        for (number, group) in delays.groups.iter().enumerate() {
-            group.gates.iter().for_each(|gate| group_of[gate.index()] = Some(number as u32));
-        }
+        let group_of = groups_of(delays);
         Groups {
             how: delays.groups.iter().map(|group| group.how).collect(),
             of: gates.map(|gate| group_of[gate? as usize]).collect(),
@@ -51,6 +57,11 @@ impl Groups {
             let u = rng.next_u64();
             *common = strata.map_or(u, |strata| strata.number(board, group, u));
         }
+    }
+
+    /// The number of a group on the present board.
+    pub fn common(&self, group: u32) -> u64 {
+        self.commons[group as usize]
     }
 
     /// The delay of a quantity of the plan at its own number.

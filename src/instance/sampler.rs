@@ -15,28 +15,36 @@
 //! | sample | then for each clock: 1 + 2·count | first edge; jitter of each edge |
 //! | sample | then for each gate: 1 | start bit (the top bit) |
 //! | sample | 2^40, then for each input of a step that bounces: 2 + 2·(most pairs) | number of pairs; span; place of each toggle but the last |
+//! | sample | 2^50 + gate | key of the firings of a gate, for `per-event`; see [`Anew::number`](super::Anew::number) |
 //! | 2^64 − 1 | place in the board's stream | key of a quantity's strata, for `hypercube` |
 //! | 2^64 − 2 | place in the sample's stream | likewise |
 //!
 //! What a group does with its number and each delay's own is told at [`Together`](crate::delay::Together), how a number
 //! finds its stratum in `strata.rs`: `hypercube` cuts the range of what a board draws into as many parts as there are
-//! boards in the plan, and of what a sample draws into as many as there are samples. Start bits and bounces are drawn
-//! independently.
+//! boards in the plan, and of what a sample draws into as many as there are samples. Start bits, bounces and firings are
+//! drawn independently.
+//!
+//! With `per-event` the delays of gates take none of the numbers of the board; they stand at typical, and every firing is
+//! drawn by [`Firings`].
 
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
 use super::Instance;
 use super::bounces::Bounces;
-use super::groups::Groups;
+use super::firings::{Anew, Drawn, Firings};
+use super::groups::{Groups, groups_of};
 use super::quantity::{Quantities, Quantity, Target};
 use super::strata::{BOARD_KEYS, SAMPLE_KEYS, Strata};
 use crate::delay::Marginal;
 use crate::logic::Bits;
-use crate::scenario::{Begin, Scenario};
+use crate::scenario::{Begin, Scenario, Vary};
 
 /// The number of the layout above; a result of another layout cannot be merged or replayed.
 pub const LAYOUT: u32 = 1;
+
+/// The first place of the keys of firings in a sample's stream, behind every bounce.
+const KEYS: u64 = 1 << 50;
 
 /// Draws the cases of one scenario, one after the other, without allocating.
 #[derive(Clone, Debug)]
@@ -47,6 +55,8 @@ pub struct Sampler {
     board_plan: Vec<Quantity>,
     sample_plan: Vec<Quantity>,
     groups: Groups,
+    /// What firings are drawn from, with the group of each gate; only for `per-event`.
+    anew: Option<(Drawn, Vec<Option<u32>>)>,
     /// Strata of the quantities of the plans, and of the groups; only for `hypercube`.
     strata: Option<Stratified>,
     bounces: Bounces,
@@ -66,11 +76,15 @@ struct Stratified {
 impl Sampler {
     /// A sampler for the draws of a scenario.
     pub fn new(scenario: &Scenario) -> Sampler {
-        let Quantities { board: board_plan, sample: sample_plan, start_place } = Quantities::of(scenario);
+        let Quantities { board: mut board_plan, sample: sample_plan, start_place } = Quantities::of(scenario);
         let gate_of = |quantity: &Quantity| match quantity.target {
             Target::Gate { gate, .. } | Target::GateBoth(gate) => Some(gate),
             _ => None,
         };
+        let anew = (scenario.plan.vary == Vary::PerEvent).then(|| firings(scenario));
+        if anew.is_some() {
+            board_plan.retain(|quantity| gate_of(quantity).is_none());
+        }
         let groups = Groups::new(&scenario.delays, board_plan.iter().map(gate_of));
         let mut rng = ChaCha8Rng::seed_from_u64(scenario.plan.seed);
         let plan = scenario.plan;
@@ -90,6 +104,7 @@ impl Sampler {
             board_plan,
             sample_plan,
             groups,
+            anew,
             strata,
             bounces: Bounces::new(&scenario.stimulus),
             start_place,
@@ -124,8 +139,28 @@ impl Sampler {
         self.draw_plan(2 * sample + 1, &plan, &Groups::default(), stratum, into);
         (self.sample_plan, self.strata) = (plan, strata);
         self.bounces.draw(&mut self.rng, 2 * sample + 1, self.draw, &mut into.bounces);
+        self.fill_firings(sample, &mut into.firings);
         if self.random_start {
             self.fill_start(sample, &mut into.start);
+        }
+    }
+
+    /// Draws the keys of a sample's firings; the board's groups are drawn.
+    fn fill_firings(&mut self, sample: u64, into: &mut Option<Firings>) {
+        let Some((template, group_of)) = &self.anew else { return };
+        if !matches!(into, Some(Firings::Drawn(_))) {
+            *into = Some(Firings::Drawn(Drawn::default()));
+        }
+        let Some(Firings::Drawn(drawn)) = into else { return };
+        drawn.draw = template.draw;
+        drawn.gates.clone_from(&template.gates);
+        self.rng.set_stream(2 * sample + 1);
+        self.rng.set_word_pos(2 * u128::from(KEYS));
+        for (gate, group) in drawn.gates.iter_mut().zip(group_of) {
+            gate.key = self.rng.next_u64();
+            if let (Some((_, common)), Some(group)) = (&mut gate.group, group) {
+                *common = self.groups.common(*group);
+            }
         }
     }
 
@@ -168,4 +203,19 @@ impl Sampler {
             into.set(quantity, span);
         }
     }
+}
+
+/// What the firings of a scenario are drawn from, still without keys and numbers of groups, and the group of each gate.
+fn firings(scenario: &Scenario) -> (Drawn, Vec<Option<u32>>) {
+    let delays = &scenario.delays;
+    let group_of = groups_of(delays);
+    let gate = |g: usize| Anew {
+        key: 0,
+        ranges: delays.gate[g],
+        one_draw: delays.gate_one_draw[g],
+        group: group_of[g].map(|group| (delays.groups[group as usize].how, 0)),
+        moved: [0; 2],
+    };
+    let gates = (0..delays.gate.len()).map(gate).collect();
+    (Drawn { draw: scenario.plan.draw, gates }, group_of)
 }

@@ -89,7 +89,7 @@ fn beginning(scenario: &Scenario, path: &Path, alike: bool) -> String {
         true => String::new(),
         false => {
             let at = path.at.from_start();
-            let whole = at.fs() % unit.femtoseconds() == 0;
+            let whole = at.fs().is_multiple_of(unit.femtoseconds());
             format!(" at {} {unit}", fixed(at, unit, if whole { 0 } else { decimals(path, unit) }))
         }
     };

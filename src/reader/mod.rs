@@ -24,7 +24,7 @@ pub use file::{FileError, MAX_BYTES, ReadError};
 pub use instance::{load_instance, read_instance};
 
 use crate::delay::Marginal;
-use crate::scenario::{BeginAt, Builder, Fault, Mark, Said, Scenario};
+use crate::scenario::{BeginAt, Builder, Fault, Mark, Said, Scenario, Vary};
 use crate::time::Unit;
 use diagnostics::Placed;
 use walk::{Value, Walk};
@@ -244,9 +244,8 @@ fn sweep(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
             }
             "draw" => draw(walk, builder, value),
             "vary" => {
-                if walk.word(value, &[("per-part", false), ("per-event", true)]) == Some(true) {
-                    let sentence = "vary `per-event`: not analysed yet; each sample draws every delay once".to_string();
-                    builder.not_analysed(Said::at(sentence, walk.mark(key.span())));
+                if let Some(vary) = walk.word(value, &Vary::ALL.map(|vary| (vary.name(), vary))) {
+                    builder.vary(vary);
                 }
             }
             _ => walk.unknown_key(key, &KEYS, "[sweep]"),

@@ -103,11 +103,38 @@ pub struct Plan {
     pub tries: u64,
     /// How delays spread over their ranges.
     pub draw: Marginal,
+    /// How often the delay of a gate is drawn.
+    pub vary: Vary,
+}
+
+/// How often the delay of a gate is drawn.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Hash, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Vary {
+    /// Once a board: part differs from part.
+    #[default]
+    PerPart,
+    /// Anew for each event that a gate schedules: jitter. What a group has in common, wires and clock periods stay those of
+    /// the board.
+    PerEvent,
+}
+
+impl Vary {
+    /// All of them, in the order of the documentation.
+    pub const ALL: [Vary; 2] = [Vary::PerPart, Vary::PerEvent];
+
+    /// The name in a scenario.
+    pub const fn name(self) -> &'static str {
+        match self {
+            Vary::PerPart => "per-part",
+            Vary::PerEvent => "per-event",
+        }
+    }
 }
 
 impl Default for Plan {
     fn default() -> Plan {
-        Plan { samples: 10_000, seed: 1, tries: 1, draw: Marginal::Uniform }
+        Plan { samples: 10_000, seed: 1, tries: 1, draw: Marginal::Uniform, vary: Vary::PerPart }
     }
 }
 

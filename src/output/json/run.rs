@@ -6,6 +6,7 @@ use super::parts::{Departed, Exact, Level, Lines, Measured, Object, OneLine, sta
 use super::races::Race;
 use crate::engine::End;
 use crate::findings::Asked;
+use crate::instance::Firings;
 use crate::output::words;
 use crate::review::RunReport;
 use crate::scenario::Scenario;
@@ -16,6 +17,7 @@ pub(super) struct Run<'a> {
     #[serde(skip_serializing_if = "Option::is_none")]
     format: Option<u32>,
     delays: String,
+    firings: Option<&'static str>,
     events: u64,
     waves: Object<&'a str, OneLine<Vec<(Exact, Level)>>>,
     windows: Vec<Window<'a>>,
@@ -126,6 +128,10 @@ impl<'a> Run<'a> {
         Run {
             format,
             delays: run.which.key(),
+            firings: run.instance.firings.as_ref().map(|firings| match firings {
+                Firings::Drawn(_) => "drawn",
+                Firings::Given(_) => "given",
+            }),
             events: trace.events,
             waves: Object(waves.collect()),
             windows: trace.windows.iter().map(window).collect(),

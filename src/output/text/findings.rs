@@ -5,7 +5,7 @@ use super::paper::{Paper, Tone};
 use crate::findings::{Against, Asked, Kind, RacePair, RuleKey, Subject};
 use crate::output::{races, words};
 use crate::review::{Why, departure_words, without_draws};
-use crate::scenario::Scenario;
+use crate::scenario::{Scenario, Vary};
 use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
 /// Most findings told in full.
@@ -66,7 +66,7 @@ pub(super) fn worst(kind: Kind, worst: Worst) -> String {
 }
 
 /// How often, how surely, how bad.
-fn figures(finding: &Finding) -> String {
+fn figures(scenario: &Scenario, finding: &Finding) -> String {
     let mut text = match finding.case.as_deref().filter(|_| finding.count == 0) {
         Some(case) => format!("in no draw, {}", without_draws(case, finding.tie)),
         None => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
@@ -87,6 +87,9 @@ fn figures(finding: &Finding) -> String {
         text += &format!(", in {mean} of their tries, the worst in {worst}");
         text += match boards.cause() {
             Cause::Parts => ": it lies in their parts",
+            Cause::Moment if scenario.plan.vary == Vary::PerEvent => {
+                ": it lies in the moment of the step or in the firings"
+            }
             Cause::Moment => ": it lies in the moment of the step",
             Cause::Mixed => "",
         };
@@ -153,13 +156,13 @@ impl Group<'_> {
         about(scenario, asked, &self.worst.subject) + &also
     }
 
-    fn figures(&self) -> String {
+    fn figures(&self, scenario: &Scenario) -> String {
         match self.whole.filter(|_| self.more_steps > 0) {
             Some(rule) => {
                 let (broken, judged) = (words::count(rule.broken), words::count(rule.judged));
-                format!("{broken} of {judged} draws over all steps; at this step {}", figures(self.worst))
+                format!("{broken} of {judged} draws over all steps; at this step {}", figures(scenario, self.worst))
             }
-            None => figures(self.worst),
+            None => figures(scenario, self.worst),
         }
     }
 }
@@ -205,7 +208,7 @@ pub(super) fn findings(
         for (i, group) in broken.iter().take(FULL).enumerate() {
             let finding = group.worst;
             paper.hang(2, 4, Tone::Bad, &format!("{} {}", i + 1, group.about(scenario, asked)));
-            paper.say(4, Tone::Plain, &group.figures());
+            paper.say(4, Tone::Plain, &group.figures(scenario));
             if let Some(against) = &finding.against {
                 let first = if finding.count > 1 { "the first: " } else { "" };
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
@@ -228,7 +231,7 @@ pub(super) fn findings(
     if !listed.is_empty() {
         paper.heading("Also seen, breaks no rule");
         for (i, group) in listed.iter().take(LISTED).enumerate() {
-            paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures()));
+            paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures(scenario)));
             if i == 0 && broken.len() <= FEW {
                 race(paper, page, scenario, of(group.worst), &mut Vec::new());
             }

@@ -5,7 +5,7 @@ use super::paper::{Paper, Tone};
 use super::{conditions, findings, flow, notes, rules, steps, sure, ties};
 use crate::output::words;
 use crate::review::{Call, Review, Verdict, Why};
-use crate::scenario::Scenario;
+use crate::scenario::{Scenario, Vary};
 use crate::sweep::SweepReport;
 
 /// Most reasons of the verdict.
@@ -77,6 +77,9 @@ pub(super) fn draws(report: &SweepReport) -> String {
         report.plan.draw.name(),
         report.plan.seed
     );
+    if report.plan.vary == Vary::PerEvent {
+        text += ", every firing anew";
+    }
     if report.plan.tries > 1 {
         text += &format!(", {} tries a board", words::count(report.plan.tries));
     }

@@ -6,6 +6,7 @@ use super::paper::{Paper, Table, Tone};
 use super::{notes, rules, steps};
 use crate::engine::{End, Window};
 use crate::findings::{Asked, Fact};
+use crate::instance::Firings;
 use crate::output::{races, words};
 use crate::review::RunReport;
 use crate::scenario::Scenario;
@@ -66,6 +67,16 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
         super::more(&mut paper, report.not_judged.len().saturating_sub(FACTS), "the JSON, with --json");
     }
     paper.gap();
+    match &report.instance.firings {
+        None => {}
+        Some(Firings::Drawn(_)) => {
+            paper.say(0, Tone::Plain, "Every firing of a gate has a delay of its own, drawn anew.")
+        }
+        Some(Firings::Given(given)) => {
+            let many = words::many(given.len() as u64, "firing");
+            paper.say(0, Tone::Plain, &format!("{many} of this case may have delays of their own."));
+        }
+    }
     let events = words::many(report.trace.events, "event");
     let end = report.trace.end.from_start().rounded();
     paper.say(0, Tone::Plain, &format!("{events} until {end}. One run says nothing of other delays."));

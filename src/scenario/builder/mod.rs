@@ -24,7 +24,7 @@ pub use stimulus::MAX_MOMENTS;
 
 use crate::circuit::Function;
 use crate::delay::Marginal;
-use crate::scenario::{Begin, Fault, Faults, Limits, Mark, Plan, Scenario};
+use crate::scenario::{Begin, Fault, Faults, Limits, Mark, Plan, Scenario, Vary};
 use crate::time::{Span, Unit};
 use context::Context;
 use said::NewFunction;
@@ -80,6 +80,7 @@ pub struct Builder {
     seed: u64,
     tries: Said<u64>,
     draw: Marginal,
+    vary: Vary,
     not_analysed: Vec<Said<String>>,
     notes: Vec<Said<String>>,
     faults: Faults,
@@ -125,6 +126,7 @@ impl Builder {
             seed: plan.seed,
             tries: Said::from(plan.tries),
             draw: plan.draw,
+            vary: plan.vary,
             not_analysed: Vec::new(),
             notes: Vec::new(),
             faults: Faults::default(),
@@ -300,6 +302,12 @@ impl Builder {
         self
     }
 
+    /// How often the delay of a gate is drawn; default once a board.
+    pub fn vary(&mut self, vary: Vary) -> &mut Builder {
+        self.vary = vary;
+        self
+    }
+
     /// Something that was told elsewhere and is not analysed yet: a whole sentence for the scenario's list.
     pub fn not_analysed(&mut self, sentence: impl Into<Said<String>>) -> &mut Builder {
         self.not_analysed.push(sentence.into());
@@ -422,6 +430,6 @@ impl Builder {
         if self.tries.what == 0 {
             context.faults.add(self.tries.mark, "a board without tries", "give each board at least 1 try");
         }
-        Plan { samples: self.samples.what, seed: self.seed, tries: self.tries.what, draw: self.draw }
+        Plan { samples: self.samples.what, seed: self.seed, tries: self.tries.what, draw: self.draw, vary: self.vary }
     }
 }
