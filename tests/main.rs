@@ -20,6 +20,7 @@ mod limits;
 mod malformed;
 mod outcomes_agree;
 mod outside;
+mod parts;
 mod paths;
 mod per_event;
 mod support;

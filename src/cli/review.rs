@@ -4,7 +4,8 @@ use std::process::ExitCode;
 
 use super::args::Sweeping;
 use super::common::{
-    Failure, INTERRUPTED, called, code, control, finish, folder, load, options, page, program, say, with_draws, write,
+    Failure, INTERRUPTED, called, code, control, finish, folder, load, options, overrides, page, program, say,
+    with_draws, write,
 };
 use crate::output::{bundle, json, text};
 use crate::review;
@@ -23,7 +24,11 @@ pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     if input.json {
         say(&json::review(&scenario, &review))?;
     } else if !input.quiet {
-        say(&text::review(&scenario, &review, &page(called(input).as_deref(), &options(&arguments.draws))))?;
+        say(&text::review(
+            &scenario,
+            &review,
+            &page(called(input).as_deref(), &options(&overrides(&arguments.draws))),
+        ))?;
     }
     let bundle = bundle::of_review(&scenario, &review);
     bundle::clear_pictures(&folder, &bundle);

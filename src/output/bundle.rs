@@ -9,7 +9,7 @@ use crate::circuit::NetId;
 use crate::findings::{Asked, Kind, Subject};
 use crate::output::flow_map::{self, Map};
 use crate::output::waves::{self, Nets, Picture};
-use crate::output::{charts, flow_tables, json, tables, words};
+use crate::output::{charts, convergence, flow_tables, json, tables, words};
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
 use crate::time::Time;
@@ -109,6 +109,10 @@ pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::Sweep
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));
     bundle.add("findings.csv", tables::findings(scenario, asked, report));
     bundle.add("rules.csv", tables::rules(scenario, report));
+    if report.stopped.is_some() {
+        bundle.add("convergence.svg", convergence::svg(scenario, asked, report));
+        bundle.add("convergence.csv", convergence::csv(scenario, asked, report));
+    }
     if let Some(table) = tables::conditions(scenario, asked, report) {
         bundle.add("conditions.csv", table);
     }
@@ -247,7 +251,7 @@ pub fn clear_pictures(folder: &Path, bundle: &Bundle) {
 /// Errors: the folder or a file cannot be written; then no file has been moved into place, unless moving itself failed.
 pub fn write(folder: &Path, files: &[File]) -> Result<(), WriteError> {
     prepare(folder)?;
-    let beside = |file: &File| folder.join(format!(".{}.part", file.name));
+    let beside = |file: &File| beside(&folder.join(&file.name));
     let done = files.iter().try_for_each(|file| {
         fs::write(beside(file), &file.bytes)
             .map_err(|source| WriteError::File { file: folder.join(&file.name), source })
@@ -265,6 +269,43 @@ pub fn write(folder: &Path, files: &[File]) -> Result<(), WriteError> {
         }
     }
     done
+}
+
+/// Puts a file in place such that, whatever happens, either the old one or the whole new one is there: it is written beside
+/// its place, brought to the disk, and then moved.
+///
+/// Errors: the file cannot be written.
+pub fn replace(path: &Path, bytes: &[u8]) -> Result<(), WriteError> {
+    let error = |source| WriteError::File { file: path.to_path_buf(), source };
+    let beside = beside(path);
+    let written = fs::File::create(&beside).and_then(|mut file| {
+        io::Write::write_all(&mut file, bytes)?;
+        file.sync_all()
+    });
+    let moved = written.and_then(|()| fs::rename(&beside, path));
+    if let Err(source) = moved {
+        // what is left over of an attempt that failed; the first error is the one to report
+        let _ = fs::remove_file(&beside);
+        return Err(error(source));
+    }
+    // that the move itself is on the disk is more than every system can do for a folder
+    let folder = path.parent().filter(|it| !it.as_os_str().is_empty()).unwrap_or(Path::new("."));
+    if let Ok(folder) = fs::File::open(folder) {
+        let _ = folder.sync_all();
+    }
+    Ok(())
+}
+
+/// Takes a file away that [`replace`] put in place, and what a killed program may have left beside it.
+pub fn remove(path: &Path) {
+    let _ = fs::remove_file(path);
+    let _ = fs::remove_file(beside(path));
+}
+
+/// Where a file is written before it is moved into place.
+fn beside(path: &Path) -> PathBuf {
+    let name = path.file_name().unwrap_or_default().to_string_lossy();
+    path.with_file_name(format!(".{name}.part"))
 }
 
 #[cfg(test)]

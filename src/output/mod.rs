@@ -7,6 +7,7 @@
 mod assumptions;
 pub mod bundle;
 pub mod charts;
+pub mod convergence;
 pub mod flow_map;
 pub mod flow_tables;
 mod flow_words;

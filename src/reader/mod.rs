@@ -7,6 +7,7 @@ mod diagnostics;
 mod file;
 mod gates;
 mod instance;
+mod part;
 mod rules;
 mod start;
 mod steps;
@@ -22,6 +23,7 @@ use toml::de::DeTable;
 pub use diagnostics::{Diagnostic, Diagnostics, Related};
 pub use file::{FileError, MAX_BYTES, ReadError};
 pub use instance::{load_instance, read_instance};
+pub use part::{LoadedPart, MAX_PART_BYTES, load_part, read_part, scenario_of};
 
 use crate::delay::Marginal;
 use crate::scenario::{BeginAt, Builder, Fault, Mark, Said, Scenario, Vary};

@@ -7,6 +7,7 @@ mod departure;
 mod paths;
 mod report;
 mod single;
+mod sweeping;
 mod ties;
 mod verdict;
 mod why;
@@ -17,18 +18,18 @@ pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, comp
 pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
+pub use sweeping::{Saved, Stops, Sweeper, sweep};
 pub use verdict::{grouped, verdict, without_draws};
 pub use why::{Away, Needs, Pull, Why};
 
 use crate::circuit::NetId;
 use crate::control::Control;
-use crate::engine::{Program, Trace};
+use crate::engine::Program;
 use crate::findings::{Asked, Kind, RuleKey};
 use crate::flow::FlowError;
 use crate::instance::Which;
 use crate::scenario::Scenario;
-use crate::statics;
-use crate::sweep::{ConditionReport, SweepReport, conclude, run_samples};
+use crate::sweep::SweepReport;
 
 /// Failing cases that a review shows as pictures, worst findings first.
 const SHOWN: usize = 12;
@@ -51,58 +52,6 @@ impl From<FlowError> for ReviewError {
             FlowError::Cancelled => ReviewError::Cancelled,
         }
     }
-}
-
-/// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
-/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows; so
-/// are typical, min and max runs. What only these show is a finding, too, and what exactly equal times have to do with
-/// findings is looked into. Then the same for every condition of the scenario. A cancelled sweep concludes from what was
-/// complete.
-pub fn sweep(
-    scenario: &Scenario,
-    program: &Program,
-    asked: &Asked,
-    threads: usize,
-    control: &Control,
-) -> Result<SweepReport, ReviewError> {
-    let (mut report, runs) = sweep_one(scenario, program, asked, threads, control)?;
-    for (which, trace) in &runs {
-        contained::run(scenario, &format!("the {} run", which.words()), trace, &Control::default())?;
-    }
-    for condition in &scenario.conditions {
-        let under = scenario.under(condition);
-        // where a run may begin does not depend on delays
-        let program = Program::new(&under, &Control::default())
-            .map_err(|_| ReviewError::Contradiction(format!("under condition {} no start is found", condition.name)))?;
-        let (sweep, _) = sweep_one(&under, &program, asked, threads, control)?;
-        report.conditions.push(ConditionReport { condition: condition.clone(), sweep });
-    }
-    Ok(report)
-}
-
-fn sweep_one(
-    scenario: &Scenario,
-    program: &Program,
-    asked: &Asked,
-    threads: usize,
-    control: &Control,
-) -> Result<(SweepReport, Vec<(Which, Trace)>), ReviewError> {
-    let tally = run_samples(scenario, program, asked, 0..scenario.plan.samples, threads, control);
-    let mut report = conclude(scenario, asked, &tally);
-    for window in &report.windows {
-        for outcome in window.outcomes.iter().filter(|outcome| !outcome.state.has_unknown()) {
-            if !statics::is_stable(&scenario.circuit, &outcome.state) {
-                let label = &scenario.stimulus.moments[window.moment as usize].label;
-                return Err(ReviewError::Contradiction(format!(
-                    "after \"{label}\" sample {} settles in a state that is not stable",
-                    outcome.first
-                )));
-            }
-        }
-    }
-    contained::sweep(scenario, &tally, &Control::default())?;
-    let runs = ties::look(scenario, program, asked, &tally, &mut report, control)?;
-    Ok((report, runs))
 }
 
 /// The main job: stable states, typical run, sweep, failing cases, verdict.

@@ -2,6 +2,7 @@
 
 use std::collections::{BTreeMap, BTreeSet};
 
+use super::ranges::Ranges;
 use super::report::{
     AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, TiesSought, WindowReport, Worst,
 };
@@ -24,6 +25,18 @@ const BARS: u64 = 60;
 
 /// Draws the conclusions of a tally.
 pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepReport {
+    conclude_after(scenario, asked, tally, 1)
+}
+
+/// The confidence of an interval at one of so many looks, such that intervals hold at all looks together with that of every
+/// interval, 0.95 (see [`looks`](super::looks())).
+pub(super) fn confidence(looks: u64) -> f64 {
+    1.0 - (1.0 - CONFIDENCE) / looks.max(1) as f64
+}
+
+/// Draws the conclusions of a tally at one of so many looks at a growing sweep: its intervals and bounds are as wide as it
+/// takes to hold at whichever look the sweep is stopped.
+pub fn conclude_after(scenario: &Scenario, asked: &Asked, tally: &Tally, looks: u64) -> SweepReport {
     let races: Vec<Race> = tally.windows.iter().enumerate().map(|(m, w)| Race::of(scenario, m as u32, w)).collect();
     let windows = tally.windows.iter().zip(&races).enumerate();
     let windows: Vec<WindowReport> = windows.map(|(m, (w, race))| window(scenario, asked, m as u32, w, race)).collect();
@@ -51,7 +64,7 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
         })
         .collect();
 
-    let judging = Judging { scenario, asked, tally };
+    let judging = Judging { scenario, asked, tally, confidence: confidence(looks) };
     let mut findings: Vec<Finding> =
         tally.facts.iter().map(|(subject, fact)| judging.finding(*subject, fact, judging.judged(subject))).collect();
     for (m, race) in races.iter().enumerate() {
@@ -102,6 +115,8 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
         at_most,
         unseen,
         unseen_untold,
+        missing: Ranges::default(),
+        stopped: None,
         conditions: Vec::new(),
         ties: TiesSought::default(),
     }
@@ -324,6 +339,7 @@ struct Judging<'a> {
     scenario: &'a Scenario,
     asked: &'a Asked,
     tally: &'a Tally,
+    confidence: f64,
 }
 
 impl Judging<'_> {
@@ -349,7 +365,7 @@ impl Judging<'_> {
             true => self.tally.boards,
             false => judged,
         };
-        let share = none_in(of, CONFIDENCE).filter(|_| plan.draw.allows_intervals())?;
+        let share = none_in(of, self.confidence).filter(|_| plan.draw.allows_intervals())?;
         Some(AtMost { share, of, boards })
     }
 
@@ -374,7 +390,7 @@ impl Judging<'_> {
         let windows = &self.tally.windows;
         let told = windows.iter().filter(|window| window.orders.total() > 0).count() as u64;
         let each = windows.iter().enumerate();
-        let masses = each.filter_map(|(m, window)| UnseenMass::of(m as u32, window, told, CONFIDENCE));
+        let masses = each.filter_map(|(m, window)| UnseenMass::of(m as u32, window, told, self.confidence));
         // the greatest estimate, of equal ones the greatest bound, of equal ones the first
         let most = masses.fold(None, |most: Option<UnseenMass>, mass| match most {
             Some(most) if (most.estimate, most.upper) >= (mass.estimate, mass.upper) => Some(most),
@@ -404,11 +420,11 @@ impl Judging<'_> {
             share,
             interval: share
                 .filter(|_| !several && plan.draw.allows_intervals())
-                .and_then(|_| clopper_pearson(fact.count, of, CONFIDENCE)),
+                .and_then(|_| clopper_pearson(fact.count, of, self.confidence)),
             boards: (several && !race && !corners).then(|| Boards {
                 of: self.tally.boards,
                 failing: fact.boards_failing,
-                interval: clopper_pearson(fact.boards_failing, self.tally.boards, CONFIDENCE)
+                interval: clopper_pearson(fact.boards_failing, self.tally.boards, self.confidence)
                     .filter(|_| plan.draw.allows_intervals()),
                 mean_share: fact.on_boards.0 as f64 / fact.on_boards.1.max(1) as f64,
                 worst_share: fact.worst_board.0 as f64 / fact.worst_board.1 as f64,

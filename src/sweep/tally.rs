@@ -13,6 +13,7 @@ use crate::scenario::Scenario;
 
 /// From which state to which: the state before a step, and the settled one.
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Passage {
     /// Before.
     pub before: Option<State>,
@@ -46,6 +47,7 @@ impl Key for State {
 
 /// An order of loop nets in one passage. Of each passage all orders are kept or none.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Order {
     /// [`Passage::mark`].
     pub passage: u64,
@@ -61,6 +63,7 @@ impl Key for Order {
 
 /// What happened in the windows of one moment.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct WindowTally {
     /// Samples in which the moment came.
     pub reached: u64,
@@ -114,6 +117,7 @@ impl PartialEq for Streak {
 
 /// Answers to one question.
 #[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct RowTally {
     /// Samples judged.
     pub judged: u64,
@@ -127,6 +131,7 @@ pub struct RowTally {
 
 /// How often something was found.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct FactTally {
     /// Does it break a rule?
     pub breaks_rule: bool,
@@ -146,13 +151,16 @@ pub struct FactTally {
 
 /// A board of which not all tries are in yet.
 #[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
-struct PartBoard {
+#[serde(deny_unknown_fields)]
+pub(super) struct PartBoard {
     samples: u64,
+    #[serde(with = "super::pairs")]
     facts: BTreeMap<Subject, u64>,
 }
 
 /// The tally of some samples of a sweep.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Tally {
     /// Samples in it.
     pub samples: u64,
@@ -163,12 +171,14 @@ pub struct Tally {
     /// One a question.
     pub rows: Vec<RowTally>,
     /// What was found.
+    #[serde(with = "super::pairs")]
     pub facts: BTreeMap<Subject, FactTally>,
     /// Complete boards in it, with several tries a board.
     pub boards: u64,
-    planned: u64,
-    tries: u64,
-    part_boards: BTreeMap<u64, PartBoard>,
+    pub(super) planned: u64,
+    pub(super) tries: u64,
+    #[serde(with = "super::pairs")]
+    pub(super) part_boards: BTreeMap<u64, PartBoard>,
     #[serde(skip)]
     sample: u64,
     #[serde(skip)]

@@ -7,8 +7,8 @@ use stillgate::logic::{Bits, State, Value};
 use stillgate::review::{Call, Review, StatesReport, Verdict, Why};
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{
-    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass, WindowReport,
-    Worst,
+    AtMost, Boards, Finding, Outcome, Ranges, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass,
+    WindowReport, Worst,
 };
 use stillgate::time::{Span, Time};
 
@@ -162,6 +162,8 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
         at_most: None,
         unseen: Some(UnseenMass { moment: 3, once: 120, of: 10_000, estimate: 0.012, upper: 0.112 }),
         unseen_untold: 0,
+        missing: Ranges::default(),
+        stopped: None,
         conditions: Vec::new(),
         ties: TiesSought { done: true, ..TiesSought::default() },
     }
@@ -257,6 +259,8 @@ pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
         at_most: None,
         unseen: None,
         unseen_untold: 0,
+        missing: Ranges::default(),
+        stopped: None,
         conditions: Vec::new(),
         ties: TiesSought::default(),
     }

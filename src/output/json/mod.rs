@@ -8,6 +8,7 @@
 mod check;
 mod flow;
 mod limit;
+mod part;
 mod parts;
 mod races;
 mod review;
@@ -17,6 +18,7 @@ mod sweep;
 
 pub use check::check;
 pub use limit::{limit, limit_map};
+pub use part::part;
 pub use review::review;
 pub use run::run;
 pub use states::states;

@@ -2,6 +2,7 @@
 
 use serde::Serialize;
 
+use super::part::ends;
 use super::parts::{Departed, Exact, Level, Measured, Object, OneLine, state};
 use super::races::Race;
 use crate::findings::Asked;
@@ -16,6 +17,10 @@ pub(super) struct Sweep<'a> {
     format: Option<u32>,
     samples: u64,
     samples_asked: u64,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    missing: Option<OneLine<Vec<[u64; 2]>>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    until: Option<OneLine<Until>>,
     seed: u64,
     tries: u64,
     draw: &'static str,
@@ -122,6 +127,16 @@ struct Boards {
     worst_share: f64,
 }
 
+/// A sweep that was to stop when sure; the intervals allow for all its looks.
+#[derive(Serialize)]
+struct Until {
+    width: f64,
+    widest: Option<f64>,
+    sure: bool,
+    looks: u64,
+    looked: u64,
+}
+
 /// The sweep under one condition.
 #[derive(Serialize)]
 struct Condition<'a> {
@@ -180,6 +195,16 @@ impl<'a> Sweep<'a> {
             format,
             samples: report.samples,
             samples_asked: report.plan.samples,
+            missing: (!report.missing.is_empty()).then(|| ends(&report.missing)),
+            until: report.stopped.as_ref().map(|it| {
+                OneLine(Until {
+                    width: it.curve.until.width(),
+                    widest: it.widest.map(six),
+                    sure: it.curve.sure,
+                    looks: it.looks,
+                    looked: it.curve.looked,
+                })
+            }),
             seed: report.plan.seed,
             tries: report.plan.tries,
             draw: report.plan.draw.name(),

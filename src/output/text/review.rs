@@ -55,9 +55,17 @@ pub(super) fn body(
     why: &[Option<Why>],
 ) {
     paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
-    if report.samples < report.plan.samples {
+    if report.samples < report.plan.samples && !report.stopped.as_ref().is_some_and(|it| it.curve.sure) {
         let (done, wanted) = (words::count(report.samples), words::count(report.plan.samples));
-        paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run."));
+        let missing = match report.missing.is_empty() {
+            true => String::new(),
+            false => format!(" Missing: {}.", report.missing.words()),
+        };
+        paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run.{missing}"));
+    }
+    for condition in report.conditions.iter().filter(|it| it.sweep.missing != report.missing) {
+        let (name, missing) = (&condition.condition.name, condition.sweep.missing.words());
+        paper.say(2, Tone::Unsure, &format!("Under condition {name}: missing {missing}."));
     }
     steps::steps(paper, scenario, report);
     findings::findings(paper, page, scenario, asked, report, why);
