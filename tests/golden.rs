@@ -404,7 +404,8 @@ fn texts_keep_to_the_page() {
             assert!(line.chars().count() <= width.min(100), "{width} columns: {line}");
         }
         if width >= 100 {
-            assert!(texts[0].lines().count() <= 60, "{}", texts[0]);
+            // a screen, and up to four lines for the two paths that race
+            assert!(texts[0].lines().count() <= 64, "{}", texts[0]);
         }
     }
 }

@@ -21,6 +21,7 @@ mod malformed;
 mod outcomes_agree;
 mod outside;
 mod parts;
+mod paths;
 mod per_event;
 mod support;
 mod searches;

@@ -97,7 +97,10 @@ pub fn of_run(scenario: &Scenario, asked: &Asked, run: &RunReport, nets: Option<
     let stem = format!("waves-{}", safe(&run.which.words()));
     let mut bundle = Bundle::default();
     let nets = nets.map_or(Nets::All, Nets::These);
-    let picture = Picture { nets, ..Picture::of_run(scenario, asked, run, &stem) };
+    // the paths of the worst finding, if it breaks a rule
+    let worst = run.facts.first().filter(|fact| fact.breaks_rule);
+    let race = worst.and_then(|fact| run.race(scenario, asked, fact));
+    let picture = Picture { nets, race, ..Picture::of_run(scenario, asked, run, &stem) };
     bundle.add_waves(&stem, &picture, run);
     bundle
 }
@@ -143,8 +146,10 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     for (finding, run) in &shown {
         let subject = &review.sweep.findings[*finding].subject;
         let stem = unique(stem(scenario, &review.asked, subject), &mut stems);
+        let why = review.why.get(*finding).and_then(Option::as_ref);
         let picture = Picture {
             nets: Nets::Telling,
+            race: why.and_then(|why| why.race.clone()),
             range: around(subject, run),
             ..Picture::of_run(scenario, &review.asked, run, &stem)
         };

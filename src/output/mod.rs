@@ -19,6 +19,7 @@ pub mod limit_map;
 pub mod limit_tables;
 mod limit_words;
 mod measure;
+mod races;
 mod search;
 pub mod tables;
 pub mod text;

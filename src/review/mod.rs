@@ -4,6 +4,7 @@
 mod conditions;
 mod contained;
 mod departure;
+mod paths;
 mod report;
 mod single;
 mod sweeping;
@@ -82,7 +83,8 @@ pub fn review(
         shown.push((index, run));
     }
     let verdict = verdict(scenario, &sweep);
-    let why = vec![None; sweep.findings.len()];
+    let mut why = vec![None; sweep.findings.len()];
+    paths::fill_races(scenario, program, &asked, &sweep, &shown, &mut why, control);
     Ok(Review { asked, states, typical: Some(typical), sweep, search, shown, why, verdict })
 }
 

@@ -10,6 +10,7 @@ mod flow;
 mod limit;
 mod part;
 mod parts;
+mod races;
 mod review;
 mod run;
 mod search;

@@ -33,7 +33,7 @@ struct Whole<'a> {
 pub fn review(scenario: &Scenario, review: &Review) -> String {
     let asked = &review.asked;
     let files = case_files(review);
-    let mut sweep = Sweep::of(scenario, asked, &review.sweep, None);
+    let mut sweep = Sweep::of(scenario, asked, &review.sweep, None).explained(scenario, &review.why);
     for (told, finding) in sweep.findings.iter_mut().zip(&review.sweep.findings) {
         if let Some(Which::Given(_)) = finding.case.as_deref() {
             told.case = file_of(&files, finding.subject.question).map(String::from);

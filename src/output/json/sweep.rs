@@ -4,9 +4,10 @@ use serde::Serialize;
 
 use super::part::ends;
 use super::parts::{Departed, Exact, Level, Measured, Object, OneLine, state};
+use super::races::Race;
 use crate::findings::Asked;
 use crate::output::words::{self, six};
-use crate::review::{Verdict, by_condition};
+use crate::review::{Verdict, Why, by_condition};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, Settling, SweepReport, TiesSought, WindowReport};
 
@@ -33,6 +34,8 @@ pub(super) struct Sweep<'a> {
     ties: OneLine<Ties>,
     #[serde(skip_serializing_if = "Option::is_none")]
     conditions: Option<Vec<Condition<'a>>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    races_not_looked_for: Option<usize>,
 }
 
 #[derive(Serialize)]
@@ -110,6 +113,9 @@ pub(super) struct Found<'a> {
     pub(super) case: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
+    /// Absent where nobody looked for it.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    race: Option<Option<Race<'a>>>,
 }
 
 #[derive(Serialize)]
@@ -228,7 +234,17 @@ impl<'a> Sweep<'a> {
             unseen_untold: report.unseen_untold,
             ties: ties(&report.ties),
             conditions: Some(conditions),
+            races_not_looked_for: None,
         }
+    }
+
+    /// With the two paths that race, for the findings where they were looked for.
+    pub fn explained(mut self, scenario: &'a Scenario, why: &[Option<Why>]) -> Sweep<'a> {
+        for (finding, why) in self.findings.iter_mut().zip(why) {
+            finding.race = why.as_ref().map(|why| why.race.as_ref().map(|pair| Race::of(scenario, pair)));
+        }
+        self.races_not_looked_for = Some(why.iter().filter(|why| why.is_none()).count());
+        self
     }
 }
 
@@ -328,6 +344,7 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         worst_sample: finding.worst_sample,
         case: finding.case.as_ref().map(|case| case.key()),
         reference: finding.against.as_ref().map(|it| Departed::of(scenario, it)),
+        race: None,
     }
 }
 

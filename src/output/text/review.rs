@@ -6,7 +6,7 @@ use super::search::{Searching, search};
 use super::{conditions, findings, flow, notes, rules, steps, sure, ties};
 use crate::output::search::case_files;
 use crate::output::words;
-use crate::review::{Call, Review, Verdict};
+use crate::review::{Call, Review, Verdict, Why};
 use crate::scenario::{Scenario, Vary};
 use crate::sweep::SweepReport;
 
@@ -19,7 +19,7 @@ pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
     verdict(&mut paper, &review.verdict);
     let files = case_files(review);
     let searching = review.search.as_ref().map(|report| Searching { report, files: &files });
-    body(&mut paper, page, scenario, &review.asked, &review.sweep, searching);
+    body(&mut paper, page, scenario, &review.asked, &review.sweep, searching, &review.why);
     flow::short(&mut paper, scenario, &review.states.flow);
     notes::notes(&mut paper, scenario);
     paper.finish()
@@ -57,6 +57,7 @@ pub(super) fn body(
     asked: &crate::findings::Asked,
     report: &SweepReport,
     searching: Option<Searching<'_>>,
+    why: &[Option<Why>],
 ) {
     paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
     if report.samples < report.plan.samples && !report.stopped.as_ref().is_some_and(|it| it.curve.sure) {
@@ -72,7 +73,7 @@ pub(super) fn body(
         paper.say(2, Tone::Unsure, &format!("Under condition {name}: missing {missing}."));
     }
     steps::steps(paper, scenario, report);
-    findings::findings(paper, page, scenario, asked, report, searching);
+    findings::findings(paper, page, scenario, asked, report, searching, why);
     conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
     sure::sure(paper, report);
