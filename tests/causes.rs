@@ -99,7 +99,7 @@ impl Block {
 /// Findings with their causes.
 fn causes(review: &Review) -> impl Iterator<Item = (&Subject, &Why)> {
     let each = review.sweep.findings.iter().zip(&review.why);
-    each.filter_map(|(finding, why)| why.as_ref().map(|why| (&finding.subject, why)))
+    each.filter_map(|(finding, why)| Some((&finding.subject, why.as_ref().filter(|why| why.pull.is_some())?)))
 }
 
 #[test]
@@ -143,7 +143,10 @@ fn the_essential_hazard_takes_an_inverter_slower_than_three_gates() {
     let [away] = why.needs.as_ref().unwrap().away[..] else { panic!("{:?}", why.needs) };
     let gate = block.scenario.circuit.net("float_not").unwrap().0 - block.scenario.circuit.input_count() as u32;
     assert_eq!((away.quantity.target, away.value), (Target::GateBoth(gate), Span::from_fs(24_000_001)));
-    assert_eq!(why.pull.told.iter().map(|it| it.quantity.target).collect::<Vec<_>>(), [away.quantity.target]);
+    assert_eq!(
+        why.pull.as_ref().unwrap().told.iter().map(|it| it.quantity.target).collect::<Vec<_>>(),
+        [away.quantity.target]
+    );
 }
 
 /// Two ways from one input to an AND: `slow` falls as `quick` rises. The AND takes 2 ns and passes a pulse of 2 ns or more.
@@ -216,7 +219,7 @@ fn of_many_delays_those_two_are_named_that_decide() {
         let text = two_ways("[10, 20, 30]", "[10, 15, 30]", &others) + &format!("[sweep]\ndraw = \"{draw}\"\n");
         let block = Block::read(&text, 1500);
         let review = block.review(1);
-        let pull = &glitch(&review).pull;
+        let pull = glitch(&review).pull.as_ref().unwrap();
         let names: Vec<(&str, bool)> = pull
             .told
             .iter()
@@ -234,7 +237,7 @@ fn of_many_delays_those_two_are_named_that_decide() {
     }
     // too few to say anything
     let block = Block::read(&two_ways("[10, 20, 30]", "[10, 15, 30]", &others), 12);
-    let pull = &glitch(&block.review(1)).pull.clone();
+    let pull = glitch(&block.review(1)).pull.clone().unwrap();
     assert!(matches!(pull.untold, Some(Untold::FewFail | Untold::FewPass)) && pull.told.is_empty(), "{pull:?}");
 }
 
@@ -275,7 +278,7 @@ fn a_toss_of_start_bits_is_decided_by_no_delay() {
         block.is_minimal(needs, subject, &review.sweep, "toss");
         assert!(needs.typical_shows_it(), "{:?}", needs.away);
         kept.insert(needs.kept.start);
-        let pull = &why.pull;
+        let pull = why.pull.as_ref().unwrap();
         assert!(pull.told.is_empty() && pull.untold.is_none() && pull.samples.0 > 100, "{pull:?}");
     }
     assert!(kept.contains(&true), "start bits other than those of the typical run are said");
@@ -306,8 +309,8 @@ fn boards_and_tries_decide_for_themselves() {
     let (subject, why) = causes(&review).find(|(subject, _)| subject.kind == Kind::SettleWithin).expect("late");
     block.is_minimal(why.needs.as_ref().unwrap(), subject, &review.sweep, "boards");
     let skew = |target: Target| matches!(target, Target::Skew { .. });
-    assert!(why.pull.told.iter().any(|it| skew(it.quantity.target)), "{:?}", why.pull);
-    for pull in &why.pull.told {
+    assert!(why.pull.as_ref().unwrap().told.iter().any(|it| skew(it.quantity.target)), "{:?}", why.pull);
+    for pull in &why.pull.as_ref().unwrap().told {
         let most = if skew(pull.quantity.target) { 256 } else { 400 };
         assert!(pull.failing <= most && pull.passing <= 1024, "{pull:?}");
     }

@@ -369,7 +369,7 @@ fn lists() {
     let bundle = bundle::of_review(&scenario, &review);
     let causes = bundle.files.iter().find(|file| file.name == "causes.csv").unwrap();
     golden("causes.csv", std::str::from_utf8(&causes.bytes).unwrap());
-    golden("rules.csv", &tables::rules(&scenario, &review.sweep));
+    golden("rules.csv", &tables::rules(&scenario, &review.sweep, None));
     golden("states.csv", &flow_tables::states(&scenario, &review.states));
     golden("transitions.csv", &flow_tables::transitions(&scenario, &review.states));
 }

@@ -5,6 +5,7 @@ use std::path::PathBuf;
 use clap::builder::PossibleValuesParser;
 use clap::{Args, Parser, Subcommand};
 
+use crate::scenario::Plan;
 use crate::sweep::Until;
 
 /// Shows where a block of feedback logic comes to rest, with typical delays and with many draws of them.
@@ -24,7 +25,7 @@ pub struct Arguments {
 #[derive(Debug, Subcommand)]
 pub enum Command {
     /// The main job: stable states, typical run, sweep, findings, pictures, verdict
-    Review(Sweeping),
+    Review(Reviewing),
     /// One run, with its waveforms
     Run(Running),
     /// The Monte Carlo sweep alone, whole or in parts
@@ -142,6 +143,26 @@ pub struct Merging {
     /// Exit with 1 if the verdict is broken or undecided
     #[arg(long)]
     pub strict: bool,
+}
+
+#[derive(Debug, Args)]
+pub struct Reviewing {
+    #[command(flatten)]
+    pub sweeping: Sweeping,
+    /// Runs that the directed search for the worst case may take for each question no draw broke, in place of the
+    /// scenario's; 0: no search. What it meets is no bound
+    #[arg(long, value_name = "N", value_parser = searched)]
+    pub search: Option<u64>,
+}
+
+/// 0, or enough runs to be of use.
+fn searched(text: &str) -> Result<u64, String> {
+    let runs: u64 = text.parse().map_err(|_| "not a whole number".to_string())?;
+    let least = Plan::LEAST_SEARCH;
+    if (1..least).contains(&runs) {
+        return Err(format!("a search takes at least {least} runs a question; 0 is none"));
+    }
+    Ok(runs)
 }
 
 #[derive(Debug, Args)]

@@ -10,7 +10,7 @@ use std::marker::PhantomData;
 
 use super::agenda::{Agenda, Due};
 use super::firing::Firing;
-use super::observer::{Closing, End, Finish, Hit, Observer, Opening};
+use super::observer::{Cancelled, Closing, End, Finish, Hit, Observer, Opening, Site};
 use super::plan::{Kind, Plan, Rule};
 use super::queue::Queue;
 use super::recovery::{age, recovering};
@@ -488,6 +488,15 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             let delay = node.next.delay(&node.delay);
             let age = at + delay - node.due;
             self.queue.remove(gate, node.due);
+            observer.cancel(&Cancelled {
+                at: Time::from_fs(at),
+                site: Site::Gate(GateId(gate)),
+                new: node.next.value(),
+                since: Time::from_fs(at - age),
+                due: Time::from_fs(node.due),
+                cause: node.tag,
+                by: tag,
+            });
             if 0 < age {
                 observer.swallow(Time::from_fs(at), GateId(gate), Span::from_fs(age), Span::from_fs(delay));
             }
@@ -512,6 +521,17 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         }
         let before = list.front().map(|event| event.due);
         let mut swallow = |gone: Option<Event<L, T>>| {
+            if let Some(gone) = gone {
+                observer.cancel(&Cancelled {
+                    at: Time::from_fs(at),
+                    site: plan.site(index),
+                    new: gone.value.value(),
+                    since: Time::from_fs(gone.since),
+                    due: Time::from_fs(gone.due),
+                    cause: gone.tag,
+                    by: tag,
+                });
+            }
             if let Some(gone) = gone.filter(|gone| index < plan.gates && gone.since < at) {
                 let (age, delay) = (Span::from_fs(at - gone.since), Span::from_fs(gone.due - gone.since));
                 observer.swallow(Time::from_fs(at), GateId(index), age, delay);

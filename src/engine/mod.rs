@@ -17,10 +17,10 @@ use std::sync::Arc;
 
 use kernel::{Anew, Kernel, Many, One};
 use level::{Bit, Ternary};
-pub use observer::{Closing, Deaf, End, Finish, Hit, Observer, Opening};
+pub use observer::{Cancelled, Closing, Deaf, End, Finish, Hit, Observer, Opening, Site};
 use plan::Plan;
 use queue::{Heap, Sorted};
-pub use trace::{Change, Link, Trace, Window};
+pub use trace::{Arrival, Change, Link, Lost, Trace, Window};
 
 use crate::control::Control;
 use crate::instance::Instance;

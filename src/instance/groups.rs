@@ -66,9 +66,36 @@ impl Groups {
 
     /// The delay of a quantity of the plan at its own number.
     pub fn span(&self, marginal: Marginal, quantity: usize, range: DelayRange, own: u64) -> Span {
-        match self.of.get(quantity).copied().flatten() {
-            Some(group) => self.how[group as usize].draw(marginal, range, own, self.commons[group as usize]),
+        self.span_with(marginal, quantity, range, own, &self.commons)
+    }
+
+    /// The same with these numbers of groups.
+    pub fn span_with(
+        &self,
+        marginal: Marginal,
+        quantity: usize,
+        range: DelayRange,
+        own: u64,
+        commons: &[u64],
+    ) -> Span {
+        match self.group_of(quantity) {
+            Some(group) => self.how[group].draw(marginal, range, own, commons[group]),
             None => marginal.quantile(range, own),
         }
+    }
+
+    /// The group of a quantity of the plan.
+    pub fn group_of(&self, quantity: usize) -> Option<usize> {
+        self.of.get(quantity).copied().flatten().map(|group| group as usize)
+    }
+
+    /// How the delays of each group belong together.
+    pub fn how(&self) -> &[Together] {
+        &self.how
+    }
+
+    /// The numbers of the present board.
+    pub fn commons(&self) -> &[u64] {
+        &self.commons
     }
 }

@@ -6,12 +6,14 @@
 mod bounces;
 mod firings;
 mod groups;
+mod numbers;
 mod perturb;
 mod quantity;
 mod sampler;
 mod strata;
 
 pub use firings::{Anew, Drawn, Firings};
+pub use numbers::{Cases, Numbers};
 pub use perturb::{PERTURBATIONS, Perturbed, Unmovable};
 pub use quantity::{Quantities, Quantity, Target};
 pub use sampler::{LAYOUT, Sampler};

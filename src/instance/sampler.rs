@@ -18,6 +18,7 @@
 //! | sample | 2^50 + gate | key of the firings of a gate, for `per-event`; see [`Anew::number`](super::Anew::number) |
 //! | 2^64 − 1 | place in the board's stream | key of a quantity's strata, for `hypercube` |
 //! | 2^64 − 2 | place in the sample's stream | likewise |
+//! | 2^64 − 3 | 2^41·question | what a directed search takes by lot |
 //!
 //! What a group does with its number and each delay's own is told at [`Together`](crate::delay::Together), how a number
 //! finds its stratum in `strata.rs`: `hypercube` cuts the range of what a board draws into as many parts as there are
@@ -123,21 +124,35 @@ impl Sampler {
     ///
     /// Quantities that are exact are left as they are, so always refill the same instance, or a typical one.
     pub fn fill(&mut self, sample: u64, into: &mut Instance) {
+        let draw = self.draw;
         let board = self.board_of(sample);
         if self.board != Some(board) {
             self.board = Some(board);
-            let (plan, mut groups) = (std::mem::take(&mut self.board_plan), std::mem::take(&mut self.groups));
-            let strata = self.strata.take();
-            self.rng.set_stream(2 * board);
-            groups.begin(&mut self.rng, strata.as_ref().map(|it| &it.groups), board);
-            let stratum = strata.as_ref().map(|it| (&it.board, board));
-            self.draw_plan(2 * board, &plan, &groups, stratum, into);
-            (self.board_plan, self.groups, self.strata) = (plan, groups, strata);
+            self.draw_board(board, &mut |groups, number, quantity, u| {
+                into.set(quantity, groups.span(draw, number, quantity.range, u));
+            });
         }
-        let (plan, strata) = (std::mem::take(&mut self.sample_plan), self.strata.take());
-        let stratum = strata.as_ref().map(|it| (&it.sample, sample));
-        self.draw_plan(2 * sample + 1, &plan, &Groups::default(), stratum, into);
-        (self.sample_plan, self.strata) = (plan, strata);
+        self.draw_sample(sample, &mut |_, quantity, u| into.set(quantity, draw.quantile(quantity.range, u)));
+        self.fill_rest(sample, into);
+    }
+
+    /// The random numbers that sample `sample` takes for its quantities, those of the board first, and for its groups.
+    pub(super) fn numbers(&mut self, sample: u64) -> (Vec<u64>, Vec<u64>) {
+        let mut own = Vec::with_capacity(self.board_plan.len() + self.sample_plan.len());
+        // the board in an instance is that of the last sample filled
+        self.board = None;
+        self.draw_board(self.board_of(sample), &mut |_, _, _, u| own.push(u));
+        self.draw_sample(sample, &mut |_, _, u| own.push(u));
+        (own, self.groups.commons().to_vec())
+    }
+
+    /// Does a sample draw this? Delays of gates whose firings are drawn anew have no draw of their own.
+    pub(super) fn draws(&self, quantity: &Quantity) -> bool {
+        self.anew.is_none() || !matches!(quantity.target, Target::Gate { .. } | Target::GateBoth(_))
+    }
+
+    /// What has no quantity: bounces, and start bits.
+    pub(super) fn fill_rest(&mut self, sample: u64, into: &mut Instance) {
         self.bounces.draw(&mut self.rng, 2 * sample + 1, self.draw, &mut into.bounces);
         self.fill_firings(sample, &mut into.firings);
         if self.random_start {
@@ -164,6 +179,28 @@ impl Sampler {
         }
     }
 
+    /// The groups of the scenario.
+    pub(super) fn groups(&self) -> &Groups {
+        &self.groups
+    }
+
+    fn draw_board(&mut self, board: u64, each: &mut impl FnMut(&Groups, usize, &Quantity, u64)) {
+        let (plan, mut groups) = (std::mem::take(&mut self.board_plan), std::mem::take(&mut self.groups));
+        let strata = self.strata.take();
+        self.rng.set_stream(2 * board);
+        groups.begin(&mut self.rng, strata.as_ref().map(|it| &it.groups), board);
+        let stratum = strata.as_ref().map(|it| (&it.board, board));
+        self.draw_plan(2 * board, &plan, stratum, |number, quantity, u| each(&groups, number, quantity, u));
+        (self.board_plan, self.groups, self.strata) = (plan, groups, strata);
+    }
+
+    fn draw_sample(&mut self, sample: u64, each: &mut impl FnMut(usize, &Quantity, u64)) {
+        let (plan, strata) = (std::mem::take(&mut self.sample_plan), self.strata.take());
+        let stratum = strata.as_ref().map(|it| (&it.sample, sample));
+        self.draw_plan(2 * sample + 1, &plan, stratum, each);
+        (self.sample_plan, self.strata) = (plan, strata);
+    }
+
     /// Draws the start bits of a sample.
     pub(super) fn fill_start(&mut self, sample: u64, start: &mut Bits) {
         self.rng.set_stream(2 * sample + 1);
@@ -173,14 +210,13 @@ impl Sampler {
         }
     }
 
-    /// Draws the quantities of a plan; `strata` with the number of the draw, where they are stratified.
+    /// Draws the numbers of a plan's quantities; `strata` with the number of the draw, where they are stratified.
     fn draw_plan(
         &mut self,
         stream: u64,
         plan: &[Quantity],
-        groups: &Groups,
         strata: Option<(&Strata, u64)>,
-        into: &mut Instance,
+        mut each: impl FnMut(usize, &Quantity, u64),
     ) {
         /// Up to here it is cheaper to draw and drop than to seek.
         const SKIP: u64 = 16;
@@ -199,8 +235,7 @@ impl Sampler {
             next = quantity.place + 1;
             let u = self.rng.next_u64();
             let u = strata.map_or(u, |(strata, draw)| strata.number(draw, number, u));
-            let span = groups.span(self.draw, number, quantity.range, u);
-            into.set(quantity, span);
+            each(number, quantity, u);
         }
     }
 }

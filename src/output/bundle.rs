@@ -8,10 +8,14 @@ use std::path::{Path, PathBuf};
 use crate::circuit::NetId;
 use crate::findings::{Asked, Kind, Subject};
 use crate::output::flow_map::{self, Map};
+use crate::output::instance::write_instance;
+use crate::output::search::case_files;
 use crate::output::waves::{self, Nets, Picture};
-use crate::output::{causes, charts, convergence, flow_tables, instance, json, tables, words};
+use crate::output::{causes, charts, convergence, flow_tables, json, tables, words};
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
+use crate::search::SearchReport;
+use crate::sweep::SweepReport;
 use crate::time::Time;
 
 /// Most findings that get a picture of their failing case.
@@ -93,19 +97,27 @@ pub fn of_run(scenario: &Scenario, asked: &Asked, run: &RunReport, nets: Option<
     let stem = format!("waves-{}", safe(&run.which.words()));
     let mut bundle = Bundle::default();
     let nets = nets.map_or(Nets::All, Nets::These);
-    let picture = Picture { nets, ..Picture::of_run(scenario, asked, run, &stem) };
+    // the paths of the worst finding, if it breaks a rule
+    let worst = run.facts.first().filter(|fact| fact.breaks_rule);
+    let race = worst.and_then(|fact| run.race(scenario, asked, fact));
+    let picture = Picture { nets, race, ..Picture::of_run(scenario, asked, run, &stem) };
     bundle.add_waves(&stem, &picture, run);
     bundle
 }
 
 /// The files of a sweep: settling times, outcomes, findings, rules, conditions if there are any.
-pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::SweepReport) -> Bundle {
+pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Bundle {
+    of_searched(scenario, asked, report, None)
+}
+
+/// The files of a sweep, with what a directed search met.
+fn of_searched(scenario: &Scenario, asked: &Asked, report: &SweepReport, search: Option<&SearchReport>) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("settling.svg", charts::settling(scenario, report));
     bundle.add("settling.csv", tables::settling(scenario, report));
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));
     bundle.add("findings.csv", tables::findings(scenario, asked, report));
-    bundle.add("rules.csv", tables::rules(scenario, report));
+    bundle.add("rules.csv", tables::rules(scenario, report, search));
     if report.stopped.is_some() {
         bundle.add("convergence.svg", convergence::svg(scenario, asked, report));
         bundle.add("convergence.csv", convergence::csv(scenario, asked, report));
@@ -118,7 +130,8 @@ pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::Sweep
 
 /// The files of a review: `result.json`, `waves-typical`, a `waves-<kind>-<net or pattern>-<step>` for each of the worst
 /// findings whose failing case was run (at most [`MOST_PICTURES`]), `causes.csv` and a `case-<kind>-<net or
-/// pattern>-<step>.toml` for each finding that was looked into, the files of the sweep and of the flow table.
+/// pattern>-<step>.toml` for each finding that was looked into, `worst-<n>.toml` for the cases that only the directed
+/// search met, the files of the sweep and of the flow table.
 pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("result.json", json::review(scenario, review));
@@ -134,8 +147,10 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     for (finding, run) in &shown {
         let subject = &review.sweep.findings[*finding].subject;
         let stem = unique(causes::stem(scenario, &review.asked, subject, "waves"), &mut stems);
+        let why = review.why.get(*finding).and_then(Option::as_ref);
         let picture = Picture {
             nets: Nets::Telling,
+            race: why.and_then(|why| why.race.clone()),
             range: around(subject, run),
             ..Picture::of_run(scenario, &review.asked, run, &stem)
         };
@@ -153,16 +168,19 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     }
     for (file, why) in causes::case_files(scenario, review).into_iter().zip(&review.why) {
         if let (Some(file), Some(needs)) = (file, why.as_ref().and_then(|why| why.needs.as_ref())) {
-            bundle.add(&file, instance::write_instance(&needs.case, scenario));
+            bundle.add(&file, write_instance(&needs.case, scenario));
         }
     }
     let broken = review.sweep.findings.iter().zip(&review.why).filter(|(finding, _)| finding.breaks_rule);
-    let left = broken.filter(|(_, why)| why.is_none()).count() as u64;
+    let left = broken.filter(|(_, why)| why.as_ref().is_none_or(|why| why.pull.is_none())).count() as u64;
     if left > 0 {
         let left = words::many(left, "finding");
         bundle.notes.push(format!("{left} that break a rule were not looked into for what they need; the worst were."));
     }
-    let sweep = of_sweep(scenario, &review.asked, &review.sweep);
+    for file in case_files(review) {
+        bundle.add(&file.name, write_instance(file.case, scenario));
+    }
+    let sweep = of_searched(scenario, &review.asked, &review.sweep, review.search.as_ref());
     bundle.files.extend(sweep.files);
     bundle.files.extend(of_states(scenario, &review.states).files);
     bundle
@@ -228,7 +246,8 @@ pub fn prepare(folder: &Path) -> Result<(), WriteError> {
     fs::create_dir_all(folder).map_err(|source| WriteError::Folder { folder: folder.to_path_buf(), source })
 }
 
-/// Takes pictures and cases of findings out of a folder that an earlier review left there and this one does not have: they would be
+/// Takes pictures, cases of findings and worst cases out of a folder that an earlier review left there and this one does not
+/// have: they would be
 /// taken for findings of this one.
 pub fn clear_pictures(folder: &Path, bundle: &Bundle) {
     let ours: BTreeSet<&str> = bundle.files.iter().map(|file| file.name.as_str()).collect();
@@ -236,10 +255,15 @@ pub fn clear_pictures(folder: &Path, bundle: &Bundle) {
         let kind = name.strip_prefix("waves-").or_else(|| name.strip_prefix("case-"));
         kind.is_some_and(|rest| Kind::ALL.iter().any(|kind| rest.starts_with(&format!("{}-", safe(kind.word())))))
     };
+    let of_a_search = |name: &str| {
+        let number = name.strip_prefix("worst-").and_then(|rest| rest.strip_suffix(".toml"));
+        number.is_some_and(|number| number.parse::<u32>().is_ok())
+    };
     for entry in fs::read_dir(folder).into_iter().flatten().flatten() {
         let name = entry.file_name();
-        if let Some(name) = name.to_str().filter(|name| of_a_finding(name) && !ours.contains(name)) {
-            // what cannot be removed is only an old picture
+        let old = |name: &&str| (of_a_finding(name) || of_a_search(name)) && !ours.contains(name);
+        if let Some(name) = name.to_str().filter(old) {
+            // what cannot be removed is only an old file
             let _ = fs::remove_file(folder.join(name));
         }
     }

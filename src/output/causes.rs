@@ -72,7 +72,8 @@ pub(super) fn kept(needs: &Needs) -> Vec<&'static str> {
 pub(super) fn table(scenario: &Scenario, review: &Review) -> Option<String> {
     let unit = scenario.unit;
     let files = case_files(scenario, review);
-    review.why.iter().any(Option::is_some).then(|| {
+    let looked_into = |why: &Option<Why>| why.as_ref().is_some_and(|why| why.pull.is_some());
+    review.why.iter().any(looked_into).then(|| {
         write(|to| {
             let head = ["finding", "kind", "shape", "rule_name", "pattern", "net", "step", "quantity"];
             let times = ["value", "min", "typ", "max"].map(|it| format!("{it} [{unit}]"));
@@ -81,7 +82,7 @@ pub(super) fn table(scenario: &Scenario, review: &Review) -> Option<String> {
             let head = head.into_iter().map(String::from).chain(times);
             to.write_record(head.chain(more.into_iter().chain(last).map(String::from)))?;
             for (number, why) in review.why.iter().enumerate() {
-                let Some(why) = why else { continue };
+                let Some(why) = why.as_ref().filter(|why| why.pull.is_some()) else { continue };
                 let named = words::subject(scenario, &review.asked, &review.sweep.findings[number].subject);
                 let finding = [
                     (number + 1).to_string(),
@@ -120,17 +121,18 @@ pub(super) fn table(scenario: &Scenario, review: &Review) -> Option<String> {
 
 /// Why no quantity is said to decide, or how many more do; `None` where all is said.
 pub(super) fn pull_remark(why: &Why) -> Option<String> {
-    match why.pull.untold {
+    let pull = why.pull.as_ref()?;
+    match pull.untold {
         Some(untold) => Some(untold.words().to_string()),
-        None if why.pull.told.is_empty() => Some("none stands out".to_string()),
-        None => (why.pull.more > 0).then(|| format!("and {} more", words::count(why.pull.more))),
+        None if pull.told.is_empty() => Some("none stands out".to_string()),
+        None => (pull.more > 0).then(|| format!("and {} more", words::count(pull.more))),
     }
 }
 
 /// Each quantity once, with what is said of it.
 fn rows(why: &Why) -> Vec<(Option<&Away>, Option<&Pull>)> {
     let away = why.needs.iter().flat_map(|needs| &needs.away);
-    let pulls = || why.pull.told.iter();
+    let pulls = || why.pull.iter().flat_map(|pull| &pull.told);
     let mut rows: Vec<_> =
         away.map(|away| (Some(away), pulls().find(|pull| pull.quantity.target == away.quantity.target))).collect();
     let named = |pull: &&Pull| rows.iter().all(|(_, other)| other.is_none_or(|other| other != *pull));

@@ -20,6 +20,8 @@ pub mod limit_map;
 pub mod limit_tables;
 mod limit_words;
 mod measure;
+mod races;
+mod search;
 pub mod tables;
 pub mod text;
 pub mod waves;

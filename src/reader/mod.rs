@@ -225,8 +225,9 @@ fn limits(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
 }
 
 fn sweep(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
-    const KEYS: [&str; 5] = ["samples", "seed", "tries", "draw", "vary"];
-    let Some(table) = walk.table(value, "write `[sweep]`, then `samples`, `seed`, `tries` or `draw`") else { return };
+    const KEYS: [&str; 6] = ["samples", "seed", "tries", "draw", "vary", "search"];
+    let wanted = "write `[sweep]`, then `samples`, `seed`, `tries`, `draw` or `search`";
+    let Some(table) = walk.table(value, wanted) else { return };
     for (key, value) in table.iter() {
         match key.get_ref().as_ref() {
             "samples" => {
@@ -245,6 +246,11 @@ fn sweep(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
                 }
             }
             "draw" => draw(walk, builder, value),
+            "search" => {
+                if let Some(runs) = walk.integer(value) {
+                    builder.search(runs);
+                }
+            }
             "vary" => {
                 if let Some(vary) = walk.word(value, &Vary::ALL.map(|vary| (vary.name(), vary))) {
                     builder.vary(vary);

@@ -4,6 +4,7 @@
 mod conditions;
 mod contained;
 mod departure;
+mod paths;
 mod report;
 mod single;
 mod sweeping;
@@ -28,7 +29,8 @@ use crate::findings::{Asked, Kind, RuleKey};
 use crate::flow::FlowError;
 use crate::instance::Which;
 use crate::scenario::Scenario;
-use crate::sweep::SweepReport;
+use crate::search::{SearchReport, search};
+use crate::sweep::{SweepReport, worst_first};
 
 /// Failing cases that a review shows as pictures, worst findings first.
 const SHOWN: usize = 12;
@@ -65,7 +67,8 @@ pub fn review(
     let asked = Asked::of(scenario);
     let states = states(scenario, control)?;
     let typical = run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?;
-    let sweep = sweep(scenario, program, &asked, threads, control)?;
+    let mut sweep = sweep(scenario, program, &asked, threads, control)?;
+    let search = search_worst(scenario, program, &asked, &mut sweep, threads, control)?;
     let mut shown = Vec::new();
     for index in to_show(&asked, &sweep) {
         let finding = &sweep.findings[index];
@@ -80,8 +83,42 @@ pub fn review(
         shown.push((index, run));
     }
     let verdict = verdict(scenario, &sweep);
-    let why = causes(scenario, program, &asked, &sweep, threads, control)?;
-    Ok(Review { asked, states, typical: Some(typical), sweep, shown, why, verdict })
+    let mut why = causes(scenario, program, &asked, &sweep, threads, control)?;
+    paths::fill_races(scenario, program, &asked, &sweep, &shown, &mut why, control);
+    Ok(Review { asked, states, typical: Some(typical), sweep, search, shown, why, verdict })
+}
+
+/// Searches for the worst case of what no draw broke, if the plan says so, and adds what it breaks to the findings. Each
+/// such case is checked against the delay-free view as the draws are.
+fn search_worst(
+    scenario: &Scenario,
+    program: &Program,
+    asked: &Asked,
+    sweep: &mut SweepReport,
+    threads: usize,
+    control: &Control,
+) -> Result<Option<SearchReport>, ReviewError> {
+    if scenario.plan.search == 0 {
+        return Ok(None);
+    }
+    let report = search(scenario, program, asked, sweep, threads, control);
+    let findings = report.findings(sweep);
+    for finding in &findings {
+        let Some(case) = finding.case.as_deref().cloned() else { continue };
+        if let Some(run) = run_one(scenario, program, asked, case, &Control::default()) {
+            contained::run(scenario, "a case of the directed search", &run.trace, &Control::default())?;
+        }
+    }
+    // what typical, min or max shows is told by that, unless it is a tie there
+    for finding in findings {
+        match sweep.findings.iter_mut().find(|old| old.subject == finding.subject && old.breaks_rule) {
+            Some(old) if old.count > 0 || old.tie.is_none() => {}
+            Some(old) => *old = finding,
+            None => sweep.findings.push(finding),
+        }
+    }
+    worst_first(&mut sweep.findings);
+    Ok(Some(report))
 }
 
 /// What makes findings alike: kind, rule and which of several, net.

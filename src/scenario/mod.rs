@@ -105,6 +105,8 @@ pub struct Plan {
     pub draw: Marginal,
     /// How often the delay of a gate is drawn.
     pub vary: Vary,
+    /// Runs that a directed search may take for each question; 0: none.
+    pub search: u64,
 }
 
 /// How often the delay of a gate is drawn.
@@ -132,9 +134,14 @@ impl Vary {
     }
 }
 
+impl Plan {
+    /// Least number of runs that a directed search of one question needs to try its starts and look at what it finds.
+    pub const LEAST_SEARCH: u64 = 50;
+}
+
 impl Default for Plan {
     fn default() -> Plan {
-        Plan { samples: 10_000, seed: 1, tries: 1, draw: Marginal::Uniform, vary: Vary::PerPart }
+        Plan { samples: 10_000, seed: 1, tries: 1, draw: Marginal::Uniform, vary: Vary::PerPart, search: 1_000 }
     }
 }
 

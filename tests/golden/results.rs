@@ -3,7 +3,7 @@
 use std::collections::BTreeMap;
 
 use stillgate::circuit::NetId;
-use stillgate::findings::{Asked, Kind, Reason, RuleKey, Shape, Subject};
+use stillgate::findings::{Asked, Kind, Leg, Path, RacePair, Reason, RuleKey, Shape, Subject};
 use stillgate::instance::{Instance, Quantities, Quantity, Which};
 use stillgate::logic::{Bits, State, Value};
 use stillgate::review::{
@@ -14,7 +14,7 @@ use stillgate::sweep::{
     AtMost, Boards, Finding, Outcome, Ranges, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass,
     WindowReport, Worst,
 };
-use stillgate::time::Span;
+use stillgate::time::{Span, Time};
 
 use super::cases::{self, ns};
 use super::flows;
@@ -202,6 +202,31 @@ pub fn states(scenario: &Scenario) -> StatesReport {
     }
 }
 
+/// The first finding with a pair of paths that begin apart, the second with none, the others not looked into.
+fn why(scenario: &Scenario, findings: usize) -> Vec<Option<Why>> {
+    let net = |name: &str| scenario.circuit.net(name).unwrap();
+    let fs = |ps: u64| Span::from_fs(ps * 1000);
+    let path = |from: &str, start: u64, legs: &[(&str, Value, u64, bool)]| {
+        let at = Time::ZERO + fs(start);
+        let mut end = at;
+        let legs = legs.iter().map(|(name, new, delay, came)| {
+            end = end + fs(*delay);
+            Leg { net: net(name), wire: None, new: *new, delay: fs(*delay), at: end, came: *came }
+        });
+        let legs = legs.collect();
+        Path { from: Some((net(from), Value::One)), moment: Some(2), at, legs, left_out: 0 }
+    };
+    let (one, zero) = (Value::One, Value::Zero);
+    let pair = RacePair {
+        first: path("call_upper", 230_000, &[("hold_upper", zero, 9_800, true), ("open_upper", one, 11_645, true)]),
+        second: Some(path("call_lower", 231_500, &[("hold_lower", zero, 10_020, false)])),
+        meet: Some(net("hold_lower")),
+    };
+    let mut why = causes(scenario, findings);
+    why[0].get_or_insert_default().race = Some(pair);
+    why
+}
+
 /// What a review of [`cases::lock`] could say.
 pub fn review(scenario: &Scenario) -> Review {
     let asked = Asked::of(scenario);
@@ -214,7 +239,8 @@ pub fn review(scenario: &Scenario) -> Review {
             (1, cases::run(scenario, Which::Sample(17))),
             (3, cases::run(scenario, Which::Sample(8123))),
         ],
-        why: causes(scenario, sweep.findings.len()),
+        why: why(scenario, sweep.findings.len()),
+        search: None,
         sweep,
         asked,
         verdict: Verdict {
@@ -251,14 +277,14 @@ fn causes(scenario: &Scenario, findings: usize) -> Vec<Option<Why>> {
     let both = Why {
         race: None,
         needs: Some(needs.clone()),
-        pull: Pulls { told, more: 3, samples: (9, 1_024), untold: None },
+        pull: Some(Pulls { told, more: 3, samples: (9, 1_024), untold: None }),
     };
     let kept = Kept { start: true, bounces: false, firings: false, exact: false };
     let away = vec![least];
     let cut = Why {
         race: None,
         needs: Some(Needs { away, minimal: false, kept, cut: Some(Cut::Runs(2_000)), runs: 2_000, ..needs }),
-        pull: Pulls { untold: Some(Untold::FewFail), ..Pulls::default() },
+        pull: Some(Pulls { untold: Some(Untold::FewFail), ..Pulls::default() }),
     };
     let mut all = vec![None; findings];
     (all[0], all[1]) = (Some(both), Some(cut));

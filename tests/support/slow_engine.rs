@@ -21,6 +21,19 @@ pub struct Event {
     pub node: usize,
     pub value: Value,
     pub since: u64,
+    /// The batch that scheduled it.
+    pub batch: usize,
+}
+
+/// What led to what, by batches: 0 is the first, at power-up that in which every gate is evaluated.
+#[derive(Debug, Default)]
+pub struct Links {
+    /// For each batch the nets that changed and the wires at whose ends something arrived.
+    pub heard: Vec<(Vec<NetId>, Vec<usize>)>,
+    /// Events that came, in the order of batches: the event, and the batch in which it came.
+    pub came: Vec<(Event, usize)>,
+    /// Events that were cancelled, and the batch that did it.
+    pub lost: Vec<(Event, usize)>,
 }
 
 struct Open {
@@ -58,10 +71,16 @@ struct Slow<'a> {
     blocks: Vec<Block>,
     window: Option<Open>,
     record: Record,
+    links: Links,
 }
 
 /// Runs one case. `rest` holds the values of all nets where the scenario begins at rest.
 pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Record {
+    run_with_links(scenario, rest, instance).0
+}
+
+/// As [`run`], with what led to what.
+pub fn run_with_links(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> (Record, Links) {
     let circuit = &scenario.circuit;
     let nets: Vec<Value> = circuit
         .nets()
@@ -101,6 +120,7 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
         blocks,
         window: None,
         record,
+        links: Links::default(),
     };
     if !matches!(scenario.begin, Begin::AtRest { .. }) {
         let opening = RecordedOpening { moments: vec![0], state: slow.nets.clone(), ..RecordedOpening::default() };
@@ -108,10 +128,11 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
         for gate in circuit.gates() {
             slow.evaluate(gate);
         }
+        slow.links.heard.push((Vec::new(), Vec::new()));
     }
     slow.look_for_pattern();
     while slow.batch() {}
-    slow.record
+    (slow.record, slow.links)
 }
 
 /// Edge `edge` of a clock: first, first + high (or low), first + period, …, moved by its jitter, not before 0.
@@ -284,6 +305,7 @@ impl Slow<'_> {
         let gates = self.scenario.circuit.gate_count();
         while self.pending.first().is_some_and(|event| event.at == at) {
             let event = self.pending.pop_first().expect("just seen");
+            self.links.came.push((event, self.links.heard.len()));
             if event.node < gates {
                 self.nets[self.scenario.circuit.net_of(GateId(event.node as u32)).index()] = event.value;
             } else {
@@ -396,6 +418,7 @@ impl Slow<'_> {
             }
         }
 
+        self.links.heard.push((changed.clone(), arrived.clone()));
         let mut blocks = std::mem::take(&mut self.blocks);
         for block in &mut blocks {
             let age = |node: usize| self.age(node);
@@ -448,7 +471,13 @@ impl Slow<'_> {
                     self.cancel(event);
                 }
                 if f != v {
-                    self.pending.insert(Event { at: self.now + span(delay, f), node, value: f, since: self.now });
+                    self.pending.insert(Event {
+                        at: self.now + span(delay, f),
+                        node,
+                        value: f,
+                        since: self.now,
+                        batch: self.links.heard.len(),
+                    });
                 }
             }
             Filter::Transport => self.schedule_all(node, v, f, delay),
@@ -494,7 +523,13 @@ impl Slow<'_> {
                     _ => {
                         let earliest = newest.map_or(self.now, |event| event.at) + 1;
                         let at = at.map_or(earliest, |at| at.max(i128::from(earliest)) as u64);
-                        self.pending.insert(Event { at, node, value: f, since: self.now });
+                        self.pending.insert(Event {
+                            at,
+                            node,
+                            value: f,
+                            since: self.now,
+                            batch: self.links.heard.len(),
+                        });
                         Some(i128::from(at))
                     }
                 };
@@ -565,12 +600,13 @@ impl Slow<'_> {
             self.cancel(event);
         }
         if last(&self.pending).map_or(present, |event| event.value) != new {
-            self.pending.insert(Event { at, node, value: new, since: self.now });
+            self.pending.insert(Event { at, node, value: new, since: self.now, batch: self.links.heard.len() });
         }
     }
 
     fn cancel(&mut self, event: Event) {
         self.pending.remove(&event);
+        self.links.lost.push((event, self.links.heard.len()));
         let age = self.now - event.since;
         if event.node < self.scenario.circuit.gate_count() && age > 0 {
             let window = self.record.windows.len();

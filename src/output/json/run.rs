@@ -3,6 +3,7 @@
 use serde::Serialize;
 
 use super::parts::{Departed, Exact, Level, Lines, Measured, Object, OneLine, state};
+use super::races::Race;
 use crate::engine::End;
 use crate::findings::Asked;
 use crate::instance::Firings;
@@ -63,6 +64,7 @@ struct Found<'a> {
     place: Option<(Exact, Exact)>,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
+    race: Option<Race<'a>>,
 }
 
 impl<'a> Run<'a> {
@@ -110,6 +112,7 @@ impl<'a> Run<'a> {
                 worst: words::worst_of(fact).map(|worst| Measured::of(worst, unit)),
                 place: fact.place.map(|(from, to)| (Exact::time(from, unit), Exact::time(to, unit))),
                 reference: run.against(fact).map(|it| Departed::of(scenario, it)),
+                race: run.race(scenario, asked, fact).map(|pair| Race::of(scenario, &pair)),
             }
         };
         let unjudged = |(number, reason): &(u32, crate::findings::Reason)| {

@@ -4,6 +4,7 @@ use serde::Serialize;
 
 use super::part::ends;
 use super::parts::{Departed, Exact, Level, Lines, Measured, Object, OneLine, state};
+use super::races::Race;
 use super::why;
 use crate::findings::Asked;
 use crate::output::causes;
@@ -28,13 +29,15 @@ pub(super) struct Sweep<'a> {
     vary: &'static str,
     windows: Vec<Window<'a>>,
     rules: Vec<Rule<'a>>,
-    findings: Vec<Found<'a>>,
+    pub(super) findings: Vec<Found<'a>>,
     failures_at_most: Option<OneLine<AtMost>>,
     unseen_mass: Option<OneLine<Unseen<'a>>>,
     unseen_untold: u64,
     ties: OneLine<Ties>,
     #[serde(skip_serializing_if = "Option::is_none")]
     conditions: Option<Vec<Condition<'a>>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    races_not_looked_for: Option<usize>,
 }
 
 #[derive(Serialize)]
@@ -90,7 +93,7 @@ struct Rule<'a> {
 }
 
 #[derive(Serialize)]
-struct Found<'a> {
+pub(super) struct Found<'a> {
     #[serde(skip_serializing_if = "Option::is_none")]
     condition: Option<&'a str>,
     kind: &'static str,
@@ -109,7 +112,7 @@ struct Found<'a> {
     tie: Option<&'static str>,
     sample: Option<u64>,
     worst_sample: Option<u64>,
-    case: Option<String>,
+    pub(super) case: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
     #[serde(skip_serializing_if = "Option::is_none")]
@@ -118,6 +121,9 @@ struct Found<'a> {
     pull: Option<Lines<why::Decisive>>,
     #[serde(skip_serializing_if = "Option::is_none")]
     pull_remark: Option<String>,
+    /// Absent where nobody looked for it.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    race: Option<Option<Race<'a>>>,
 }
 
 #[derive(Serialize)]
@@ -236,20 +242,21 @@ impl<'a> Sweep<'a> {
             unseen_untold: report.unseen_untold,
             ties: ties(&report.ties),
             conditions: Some(conditions),
+            races_not_looked_for: None,
         }
     }
-}
 
-impl Sweep<'_> {
-    /// Adds why findings happen, where that was looked into.
-    pub fn explain(mut self, scenario: &Scenario, review: &Review) -> Self {
+    /// With why findings happen, where that was looked into.
+    pub fn explained(mut self, scenario: &'a Scenario, review: &Review) -> Sweep<'a> {
         let files = causes::case_files(scenario, review);
-        for ((found, why), file) in self.findings.iter_mut().zip(&review.why).zip(files) {
+        for ((finding, why), file) in self.findings.iter_mut().zip(&review.why).zip(files) {
             let Some(why) = why else { continue };
-            found.needs = why::needs(scenario, why, file);
-            found.pull = Some(why::pull(scenario, why));
-            found.pull_remark = causes::pull_remark(why);
+            finding.race = Some(why.race.as_ref().map(|pair| Race::of(scenario, pair)));
+            finding.needs = why::needs(scenario, why, file);
+            finding.pull = why::pull(scenario, why);
+            finding.pull_remark = causes::pull_remark(why);
         }
+        self.races_not_looked_for = Some(review.why.iter().filter(|why| why.is_none()).count());
         self
     }
 }
@@ -353,6 +360,7 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         needs: None,
         pull: None,
         pull_remark: None,
+        race: None,
     }
 }
 

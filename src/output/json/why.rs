@@ -66,12 +66,13 @@ pub(super) fn needs(scenario: &Scenario, why: &Why, case: Option<String>) -> Opt
     })
 }
 
-pub(super) fn pull(scenario: &Scenario, why: &Why) -> Lines<Decisive> {
+pub(super) fn pull(scenario: &Scenario, why: &Why) -> Option<Lines<Decisive>> {
     let decisive = |it: &Pull| Decisive {
         what: words::quantity(scenario, it.quantity.target),
         strength: six(it.strength),
         failing: it.failing,
         passing: it.passing,
     };
-    Lines(why.pull.told.iter().map(decisive).collect())
+    let pull = why.pull.as_ref()?;
+    Some(Lines(pull.told.iter().map(decisive).collect()))
 }

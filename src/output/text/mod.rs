@@ -14,6 +14,7 @@ mod part;
 mod review;
 mod rules;
 mod run;
+mod search;
 mod states;
 mod steps;
 mod sure;
@@ -44,7 +45,7 @@ pub struct Page<'a> {
     pub scenario: Option<&'a str>,
     /// Options of the draws that the user gave, for the same commands: ` --seed 7`; else empty.
     pub options: &'a str,
-    /// The folder that files of cases are written to, for the same commands; empty for the current one.
+    /// The folder of the files of this review, for the same commands; empty if files are named alone.
     pub folder: &'a str,
 }
 
@@ -59,6 +60,11 @@ impl Page<'_> {
         paper::Paper::new(self.style, self.width)
     }
 
+    /// Columns that a text takes.
+    fn columns(&self) -> usize {
+        paper::columns(self.width)
+    }
+
     /// The command that replays a case, under a condition if one is named.
     fn replay(&self, case: &Which, condition: Option<&str>) -> String {
         let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
@@ -68,11 +74,11 @@ impl Page<'_> {
 }
 
 impl Page<'_> {
-    /// The command that replays a case from its file in the folder.
+    /// The command that runs the case in a file of this review.
     fn replay_file(&self, file: &str) -> String {
         let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
         let path = std::path::Path::new(self.folder).join(file);
-        format!("stillgate run{scenario} --delays {}", in_a_shell(&path.to_string_lossy()))
+        format!("stillgate run{scenario} --delays {}", in_a_shell(&path.display().to_string()))
     }
 }
 

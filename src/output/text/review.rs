@@ -2,8 +2,10 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
+use super::search::{Searching, search};
 use super::why::Causes;
 use super::{conditions, findings, flow, notes, rules, steps, sure, ties};
+use crate::output::search::case_files;
 use crate::output::words;
 use crate::review::{Call, Review, Verdict};
 use crate::scenario::{Scenario, Vary};
@@ -16,8 +18,10 @@ const REASONS: usize = 5;
 pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     verdict(&mut paper, &review.verdict);
+    let files = case_files(review);
+    let searching = review.search.as_ref().map(|report| Searching { report, files: &files });
     let mut causes = Causes::of(scenario, review);
-    body(&mut paper, page, scenario, &review.asked, &review.sweep, Some(&mut causes));
+    body(&mut paper, page, scenario, &review.asked, &review.sweep, searching, Some(&mut causes));
     flow::short(&mut paper, scenario, &review.states.flow);
     notes::notes(&mut paper, scenario);
     paper.finish()
@@ -54,6 +58,7 @@ pub(super) fn body(
     scenario: &Scenario,
     asked: &crate::findings::Asked,
     report: &SweepReport,
+    searching: Option<Searching<'_>>,
     causes: Option<&mut Causes<'_>>,
 ) {
     paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
@@ -70,13 +75,16 @@ pub(super) fn body(
         paper.say(2, Tone::Unsure, &format!("Under condition {name}: missing {missing}."));
     }
     steps::steps(paper, scenario, report);
-    findings::findings(paper, page, scenario, asked, report, causes);
+    findings::findings(paper, page, scenario, asked, report, searching, causes);
     conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
     sure::sure(paper, report);
     ties::ties(paper, report);
     rules::not_judged(paper, scenario, report);
-    rules::margins(paper, scenario, report);
+    rules::margins(paper, scenario, report, searching);
+    if let Some(searching) = searching {
+        search(paper, page, searching);
+    }
 }
 
 /// What was drawn: `Monte Carlo, 10,000 draws, uniform, seed 1`.

@@ -7,7 +7,7 @@ use super::{notes, rules, steps};
 use crate::engine::{End, Window};
 use crate::findings::{Asked, Fact};
 use crate::instance::Firings;
-use crate::output::words;
+use crate::output::{races, words};
 use crate::review::RunReport;
 use crate::scenario::Scenario;
 
@@ -49,6 +49,11 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
         for fact in report.facts.iter().take(FACTS) {
             let (tone, words) = told(scenario, asked, report, fact);
             paper.item(tone, &words);
+            if let Some(pair) = report.race(scenario, asked, fact) {
+                for line in races::lines(scenario, &pair, 2 * (page.columns() - 8)) {
+                    paper.hang(4, 6, Tone::Plain, &line);
+                }
+            }
         }
         super::more(&mut paper, report.facts.len().saturating_sub(FACTS), "the JSON, with --json");
     }

@@ -11,7 +11,7 @@ use crate::time::rounded;
 /// Most quantities named of one finding, of either kind.
 const NAMED: usize = 4;
 /// Causes told in full; those of further findings are in the table.
-const FULL: usize = 3;
+const FULL: usize = 1;
 /// Below this share of its way how far a quantity is from typical is told as a time.
 const HARDLY: f64 = 0.001;
 
@@ -26,6 +26,17 @@ pub(super) struct Causes<'a> {
 impl<'a> Causes<'a> {
     pub fn of(scenario: &Scenario, review: &'a Review) -> Causes<'a> {
         Causes { review, files: causes::case_files(scenario, review), told: Vec::new() }
+    }
+
+    /// One a finding of the sweep.
+    pub fn why(&self) -> &'a [Option<Why>] {
+        &self.review.why
+    }
+
+    /// Is something left to the table?
+    pub fn more(&self) -> bool {
+        let mut more = self.told.iter().enumerate().skip(FULL);
+        more.any(|(number, text)| !text.is_empty() && !self.told[..number].contains(text))
     }
 
     /// Why the next finding of the text happens, if that was looked into. What was told of one before is not told again.
@@ -64,8 +75,7 @@ impl Told {
     pub fn beside(&self) -> String {
         match self {
             Told::SameAs(number) => format!("; it takes the same as {number}"),
-            Told::InTheTable => "; what it takes is in causes.csv".to_string(),
-            Told::Anew { .. } => String::new(),
+            Told::InTheTable | Told::Anew { .. } => String::new(),
         }
     }
 
@@ -120,13 +130,13 @@ fn away(scenario: &Scenario, it: &Away) -> String {
 
 /// `over all failing draws: float_not delay long (0.83), up_b delay short (0.31)`.
 fn pull(scenario: &Scenario, why: &Why) -> Option<String> {
-    let told = &why.pull.told;
+    let told = &why.pull.as_ref()?.told;
     let each = |it: &Pull| {
         let side = if it.strength > 0.0 { "long" } else { "short" };
         format!("{} {side} ({:.2})", words::quantity(scenario, it.quantity.target), it.strength.abs())
     };
     let named: Vec<String> = told.iter().take(NAMED).map(each).collect();
-    let more = told.len().saturating_sub(NAMED) as u64 + why.pull.more;
+    let more = told.len().saturating_sub(NAMED) as u64 + why.pull.as_ref()?.more;
     let more = if more > 0 { format!(" and {} more", words::count(more)) } else { String::new() };
     (!named.is_empty()).then(|| format!("over all failing draws: {}{more}", named.join(", ")))
 }

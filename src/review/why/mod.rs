@@ -35,8 +35,8 @@ pub struct Why {
     /// The least that must leave typical for it to happen; `None` where no case shows it by itself (a race that no draw
     /// made), its case cannot be put together from what is drawn, or it was interrupted.
     pub needs: Option<Needs>,
-    /// Which quantities decide.
-    pub pull: Pulls,
+    /// Which quantities decide; `None` where only the paths were looked for.
+    pub pull: Option<Pulls>,
 }
 
 /// Looks into the first [`LOOKED_INTO`] findings of a sweep that break a rule, on this many threads (0: all cores): one
@@ -71,7 +71,8 @@ pub fn causes(
         while let Some(index) = chosen.get(next.fetch_add(1, Ordering::Relaxed)) {
             let finding = &sweep.findings[*index];
             let needs = needs::of(scenario, program, asked, sweep, finding, control);
-            let why = needs.map(|needs| Why { race: None, needs, pull: pull::of(scenario, sweep, finding, &strays) });
+            let why =
+                needs.map(|needs| Why { race: None, needs, pull: Some(pull::of(scenario, sweep, finding, &strays)) });
             found.lock().unwrap_or_else(std::sync::PoisonError::into_inner).push((*index, why));
             // behind the samples, so that a bar never goes back
             let (whole, done) = (sweep.samples, done.fetch_add(1, Ordering::Relaxed) as u64 + 1);
