@@ -70,14 +70,7 @@ impl Groups {
     }
 
     /// The same with these numbers of groups.
-    pub fn span_with(
-        &self,
-        marginal: Marginal,
-        quantity: usize,
-        range: DelayRange,
-        own: u64,
-        commons: &[u64],
-    ) -> Span {
+    pub fn span_with(&self, marginal: Marginal, quantity: usize, range: DelayRange, own: u64, commons: &[u64]) -> Span {
         match self.group_of(quantity) {
             Some(group) => self.how[group].draw(marginal, range, own, commons[group]),
             None => marginal.quantile(range, own),

@@ -3,8 +3,8 @@
 use crate::findings::{Asked, Reason};
 use crate::output::words::{self, six};
 use crate::review::{Cell, Compared, compare, departure_words};
-use crate::search::SearchReport;
 use crate::scenario::{Condition, Scenario};
+use crate::search::SearchReport;
 use crate::sweep::{SweepReport, Worst};
 use crate::time::Decimal;
 

@@ -6,9 +6,7 @@ use stillgate::circuit::NetId;
 use stillgate::findings::{Asked, Kind, Leg, Path, RacePair, Reason, RuleKey, Shape, Subject};
 use stillgate::instance::{Instance, Quantities, Quantity, Which};
 use stillgate::logic::{Bits, State, Value};
-use stillgate::review::{
-    Away, Call, Cut, Kept, Needs, Pull, Pulls, Review, StatesReport, Untold, Verdict, Why,
-};
+use stillgate::review::{Away, Call, Cut, Kept, Needs, Pull, Pulls, Review, StatesReport, Untold, Verdict, Why};
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{
     AtMost, Boards, Finding, Outcome, Ranges, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass,

@@ -76,12 +76,7 @@ pub(super) fn not_judged(paper: &mut Paper, scenario: &Scenario, report: &SweepR
 
 /// Margins of rules with a number that no draw broke, smallest first; of one rule the step with the smallest. Beside each
 /// the smallest that a directed search met at any of its steps.
-pub(super) fn margins(
-    paper: &mut Paper,
-    scenario: &Scenario,
-    report: &SweepReport,
-    searching: Option<Searching<'_>>,
-) {
+pub(super) fn margins(paper: &mut Paper, scenario: &Scenario, report: &SweepReport, searching: Option<Searching<'_>>) {
     let same_rule = |rule: &RuleReport, number: u32| {
         let key = |it: &Question| (it.rule, it.index, it.net);
         report.rules.get(number as usize).is_some_and(|other| key(&other.question) == key(&rule.question))
