@@ -56,7 +56,7 @@
 //! # The floors, lowest first
 //!
 //! [`time`], [`logic`], [`control`] · [`circuit`] · [`delay`] · [`scenario`] · [`instance`] · [`statics`] · [`flow`] · [`engine`] ·
-//! [`findings`] · [`sweep`] · [`review`] · [`limit`] · [`reader`], [`output`] · [`cli`]. A module uses only floors below its own.
+//! [`findings`] · [`sweep`] · [`search`] · [`review`] · [`limit`] · [`reader`], [`output`] · [`cli`]. A module uses only floors below its own.
 //!
 //! # What is not modelled
 //!
@@ -81,6 +81,7 @@ pub mod proof;
 pub mod reader;
 pub mod review;
 pub mod scenario;
+pub mod search;
 pub mod statics;
 pub mod sweep;
 pub mod time;

@@ -193,7 +193,9 @@ fn every_command_answers_in_json_and_in_text() {
         assert!(document.is_object());
         let output = stillgate(folder.path(), &[command, &path]);
         let said = text(&output.stdout);
-        assert!(said.lines().count() > 3 && said.lines().all(|line| line.chars().count() <= 100), "{command}: {said}");
+        // a command to be copied stays on one line, whatever the path
+        let fits = |line: &str| line.chars().count() <= 100 || line.trim_start().starts_with("stillgate run ");
+        assert!(said.lines().count() > 3 && said.lines().all(fits), "{command}: {said}");
         assert!(!said.contains('\u{1b}'), "{command}: colour without a terminal");
         for word in ["proved", "holds", "passed"] {
             assert!(!said.contains(word), "{command} says {word}: {said}");

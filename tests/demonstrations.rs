@@ -19,6 +19,7 @@ fn every_demonstration_shows_what_it_says() {
         ("selector-cured", Call::NoFailureFound, None),
         ("divider", Call::NoFailureFound, None),
         ("horn", Call::NoFailureFound, Some(Kind::Oscillation)),
+        ("bell", Call::Broken, Some(Kind::Timing)),
         ("handshake", Call::NoFailureFound, None),
         ("sequencer", Call::Broken, Some(Kind::Expect)),
         ("permit", Call::Broken, Some(Kind::NotInReference)),

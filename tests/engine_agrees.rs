@@ -5,7 +5,7 @@ use stillgate::circuit::{Compiled, Function, NetId};
 use stillgate::control::Control;
 use stillgate::delay::Filter;
 use stillgate::engine::{End, Hit, Program};
-use stillgate::instance::Instance;
+use stillgate::instance::{Firings, Instance};
 use stillgate::logic::{Bits, Value};
 use stillgate::scenario::{Begin, MomentKind, Place, Scenario};
 
@@ -30,6 +30,8 @@ struct Met {
     /// Steps that waited for a pattern which came.
     came: usize,
     never_came: usize,
+    /// Cases in which firings differ: drawn, given.
+    anew: [usize; 2],
     /// Gates of more than six nets: counting, parity, table.
     wide: [usize; 3],
 }
@@ -44,6 +46,11 @@ impl Met {
                 self.came += usize::from(matches!(place, Place::When { .. }));
                 self.bounced += usize::from(instance.bounces[step as usize].iter().any(|toggles| !toggles.is_empty()));
             }
+        }
+        match instance.firings {
+            None => {}
+            Some(Firings::Drawn(_)) => self.anew[0] += 1,
+            Some(Firings::Given(_)) => self.anew[1] += 1,
         }
         self.never_came += usize::from(record.never_came.is_some());
         for gate in circuit.gates() {
@@ -109,6 +116,9 @@ pub fn print(scenario: &Scenario, rest: &Bits, instance: &Instance) -> String {
         };
         let (wait, skew, bounce) = (instance.places[s].fs(), &instance.skews[s], &instance.bounces[s]);
         text += &format!("\nstep {} {word} {wait} sets {set:?} skew {skew:?} bounce {bounce:?}", s + 1);
+    }
+    if let Some(firings) = &instance.firings {
+        text += &format!("\n{firings:?}");
     }
     for (clock, case) in scenario.stimulus.clocks.iter().zip(&instance.clocks) {
         text += &format!("\nclock {} {case:?}", name(&clock.net));
@@ -242,6 +252,51 @@ fn rings_that_recur_and_rings_that_nearly_do() {
     assert!(met.inexact > 10, "{met:?}");
     let met = agree(450, Kind { filters: Filters::All, wires: 0.2, delays: Lengths::Short, clocks: true, ..kind });
     assert!(met.exact > 50 && met.cut > 100, "{met:?}");
+}
+
+/// Every gate asks for its k-th event at the same place in every machine, whatever comes to pass in one instant.
+#[test]
+fn firings_that_differ() {
+    let kind = Kind { anew: true, ..PLAIN };
+    let met = agree(1500, kind);
+    assert!(met.anew.iter().all(|cases| *cases > 50) && met.settled > 300 && met.swallowed > 100, "{met:?}");
+    let met = agree(1500, Kind { filters: Filters::All, wires: 0.3, delays: Lengths::Short, clocks: true, ..kind });
+    assert!(met.settled > 200 && met.cut > 100 && met.swallowed > 100, "{met:?}");
+    let met = agree(600, Kind { filters: Filters::Involution, delays: Lengths::Wide, hazards: true, ..kind });
+    assert!(met.settled > 100 && met.swallowed > 50, "{met:?}");
+    let met = agree(900, Kind { begin: Start::Random, filters: Filters::Mixed, hands: 0.2, ..kind });
+    assert!(met.settled > 100 && met.came > 20 && met.bounced > 20, "{met:?}");
+    let met = agree(900, Kind { begin: Start::Unknown, wires: 0.2, ..kind });
+    assert!(met.settled > 100 && met.unknown_left > 20, "{met:?}");
+    let kind = Kind { begin: Start::Random, gates: (2, 4), limits: &[150, 5000, 20_000], rings: true, ..kind };
+    let met = agree(200, kind);
+    assert!(met.exact > 10 && met.inexact > 30, "{met:?}");
+    let met = agree(200, Kind { filters: Filters::All, wires: 0.2, delays: Lengths::Short, ..kind });
+    assert!(met.exact > 10 && met.inexact > 30, "{met:?}");
+    let met = agree(12, Kind { gates: (100, 160), limits: &[2000], rings: false, ..kind });
+    assert!(met.settled + met.transitions + met.inexact > 5, "{met:?}");
+}
+
+/// One machine for cases with and without firings of their own: nothing of one stays for the next.
+#[test]
+fn a_machine_runs_cases_of_both_kinds() {
+    let kind = Kind { anew: true, filters: Filters::All, wires: 0.2, ..PLAIN };
+    let mut met = 0;
+    for Case { name, scenario, rest, instance, .. } in cases(300, kind) {
+        let plain = Instance { firings: None, ..instance.clone() };
+        let program = Program::with_rest(&scenario, &rest);
+        let (mut one, mut recorder) = (program.machine(), Recorder::new(scenario.circuit.net_count()));
+        let mut records = Vec::new();
+        for case in [&instance, &plain, &instance, &plain] {
+            one.run(case, &Control::default(), &mut recorder);
+            records.push(recorder.record.clone());
+            let mut fresh = Recorder::new(scenario.circuit.net_count());
+            program.machine().run(case, &Control::default(), &mut fresh);
+            assert_eq!(fresh.record, recorder.record, "{name}");
+        }
+        met += usize::from(records[0] != records[1]);
+    }
+    assert!(met > 30, "the two kinds differ: {met}");
 }
 
 /// Enough gates for the other queue, and for a heap that is more than one level deep.

@@ -180,6 +180,7 @@ fn a_replay_on_any_machine_gives_the_same_trace() {
                 // order within a batch and cause links included
                 assert_eq!(again.changes, first.changes, "{name} {machine:?}");
                 assert_eq!(again.windows, first.windows, "{name} {machine:?}");
+                assert_eq!((&again.arrivals, &again.lost), (&first.arrivals, &first.lost), "{name} {machine:?}");
                 assert_eq!((again.end, again.events, &again.start), (first.end, first.events, &first.start), "{name}");
             }
         }

@@ -58,7 +58,7 @@ fn drawn(scenario: &Scenario, samples: u64) -> Vec<Instance> {
 
 /// The part of the probability that lies at or below a drawn delay, from the formula of the distribution; the middle of
 /// the step where whole femtoseconds make one.
-fn below(draw: Marginal, range: DelayRange, span: Span) -> f64 {
+pub fn below(draw: Marginal, range: DelayRange, span: Span) -> f64 {
     let [min, typ, max, x] = [range.min, range.typ, range.max, span].map(|it| it.fs() as f64);
     let phi = |z: f64| 0.5 * libm::erfc(-z / 2f64.sqrt());
     match draw {

@@ -5,6 +5,9 @@ use std::path::PathBuf;
 use clap::builder::PossibleValuesParser;
 use clap::{Args, Parser, Subcommand};
 
+use crate::scenario::Plan;
+use crate::sweep::Until;
+
 /// Shows where a block of feedback logic comes to rest, with typical delays and with many draws of them.
 ///
 /// A scenario file holds the circuit, its delay ranges, the stimulus and the rules. Without one, the built-in
@@ -22,11 +25,13 @@ pub struct Arguments {
 #[derive(Debug, Subcommand)]
 pub enum Command {
     /// The main job: stable states, typical run, sweep, findings, pictures, verdict
-    Review(Sweeping),
+    Review(Reviewing),
     /// One run, with its waveforms
     Run(Running),
-    /// The Monte Carlo sweep alone
-    Sweep(Sweeping),
+    /// The Monte Carlo sweep alone, whole or in parts
+    Sweep(Long),
+    /// Puts the parts of a sweep together
+    Merge(Merging),
     /// How fast may it go: shortest spacing, pulse, period, setup or hold, longest skew for which all rules pass
     Limit(Limiting),
     /// All stable states, without delays
@@ -81,6 +86,83 @@ pub struct Sweeping {
     /// Exit with 1 if the verdict is broken or undecided
     #[arg(long)]
     pub strict: bool,
+}
+
+#[derive(Debug, Args)]
+pub struct Long {
+    #[command(flatten)]
+    pub sweeping: Sweeping,
+    /// Sweep only samples A to A+N-1 of the plan and write them as a part, to be put together by `merge`
+    #[arg(long, value_name = "A", requires = "count", conflicts_with_all = ["part", "until", "strict", "unfinished"])]
+    pub samples_from: Option<u64>,
+    /// How many samples the part has; with --samples-from. With `tries`, whole boards
+    #[arg(long, value_name = "N", requires = "samples_from", value_parser = clap::value_parser!(u64).range(1..1 << 62))]
+    pub count: Option<u64>,
+    /// The K-th of N parts of about equal size, from 1, in place of --samples-from and --count
+    #[arg(long, value_name = "K/N", value_parser = share, conflicts_with_all = ["until", "strict", "unfinished"])]
+    pub part: Option<(u64, u64)>,
+    /// Keep what is done after each N samples, so that nothing before is lost if the program is killed
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(1..1 << 62))]
+    pub keep_every: Option<u64>,
+    /// Go on with an unfinished sweep or part, from the file that it left. The scenario and its draws are in the file
+    #[arg(long = "continue", id = "unfinished", value_name = "PART", conflicts_with_all = ["scenario", "samples", "seed", "draw", "until"])]
+    pub unfinished: Option<PathBuf>,
+    /// Stop when every 95 % interval of a share is at most this wide, from end to end, as in 1e-4; --samples is the most
+    #[arg(long, value_name = "WIDTH")]
+    pub until: Option<Until>,
+}
+
+/// `3/16`: the third of sixteen.
+fn share(text: &str) -> Result<(u64, u64), String> {
+    let numbers = text.split_once('/').and_then(|(k, n)| Some((k.parse().ok()?, n.parse().ok()?)));
+    match numbers {
+        Some((k, n)) if (1..=n).contains(&k) => Ok((k, n)),
+        _ => Err("write K/N, as in 3/16 for the third of sixteen parts; K is 1 to N".to_string()),
+    }
+}
+
+#[derive(Debug, Args)]
+pub struct Merging {
+    /// Files of parts, in any order
+    #[arg(required = true, value_name = "PART")]
+    pub parts: Vec<PathBuf>,
+    /// Accept samples that no part has; the result says which
+    #[arg(long)]
+    pub allow_gaps: bool,
+    /// Write the parts together as one part, in place of results; they need not be all of the sweep
+    #[arg(long, value_name = "FILE", conflicts_with_all = ["out", "strict", "allow_gaps"])]
+    pub save: Option<PathBuf>,
+    #[command(flatten)]
+    pub folder: Folder,
+    /// Print one JSON object instead of the text
+    #[arg(long)]
+    pub json: bool,
+    /// Print nothing but errors (and the JSON object, with --json)
+    #[arg(long, short)]
+    pub quiet: bool,
+    /// Exit with 1 if the verdict is broken or undecided
+    #[arg(long)]
+    pub strict: bool,
+}
+
+#[derive(Debug, Args)]
+pub struct Reviewing {
+    #[command(flatten)]
+    pub sweeping: Sweeping,
+    /// Runs that the directed search for the worst case may take for each question no draw broke, in place of the
+    /// scenario's; 0: no search. What it meets is no bound
+    #[arg(long, value_name = "N", value_parser = searched)]
+    pub search: Option<u64>,
+}
+
+/// 0, or enough runs to be of use.
+fn searched(text: &str) -> Result<u64, String> {
+    let runs: u64 = text.parse().map_err(|_| "not a whole number".to_string())?;
+    let least = Plan::LEAST_SEARCH;
+    if (1..least).contains(&runs) {
+        return Err(format!("a search takes at least {least} runs a question; 0 is none"));
+    }
+    Ok(runs)
 }
 
 #[derive(Debug, Args)]

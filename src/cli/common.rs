@@ -19,6 +19,7 @@ use crate::reader::{self, Diagnostics, Loaded, ReadError};
 use crate::review::{Call, ReviewError};
 use crate::scenario::Scenario;
 use crate::statics::NoRest;
+use crate::sweep::{Overrides, Refusal};
 
 /// The built-in demonstration.
 const DEMONSTRATION: &str = include_str!("../../scenarios/interlock.toml");
@@ -34,6 +35,9 @@ pub enum Failure {
     /// The input or the command line is bad.
     #[error("{0}")]
     Bad(String),
+    /// Parts cannot be put together.
+    #[error("{}", refused(.0))]
+    Parts(Vec<Refusal>),
     /// The program contradicts itself.
     #[error("the program contradicts itself: {0}; please report this, with the scenario file")]
     Contradiction(String),
@@ -46,11 +50,28 @@ impl Failure {
     /// The exit code.
     pub fn code(&self) -> u8 {
         match self {
-            Failure::Faults(_) | Failure::Bad(_) => 2,
+            Failure::Faults(_) | Failure::Bad(_) | Failure::Parts(_) => 2,
             Failure::Contradiction(_) => 3,
             Failure::Interrupted => INTERRUPTED,
         }
     }
+}
+
+/// Most refusals that are told one by one.
+const REFUSALS: usize = 20;
+
+fn refused(refusals: &[Refusal]) -> String {
+    if let [only] = refusals {
+        return only.to_string();
+    }
+    let mut text = "these parts cannot be put together; nothing was written".to_string();
+    for refusal in refusals.iter().take(REFUSALS) {
+        text += &format!("\n  {refusal}");
+    }
+    if refusals.len() > REFUSALS {
+        text += &format!("\n  ... and {} more", refusals.len() - REFUSALS);
+    }
+    text
 }
 
 /// Exit code of an interrupted command.
@@ -90,6 +111,12 @@ impl From<bundle::WriteError> for Failure {
     }
 }
 
+impl From<Refusal> for Failure {
+    fn from(refusal: Refusal) -> Failure {
+        Failure::Parts(vec![refusal])
+    }
+}
+
 /// Tells what went wrong, on standard error.
 pub fn complain(failure: &Failure) {
     let text = match failure {
@@ -112,6 +139,7 @@ pub fn page<'a>(called: Option<&'a str>, options: &'a str) -> Page<'a> {
         width: console::Term::stdout().size_checked().map_or(WIDTH, |(_, columns)| usize::from(columns)),
         scenario: called,
         options,
+        folder: "",
     }
 }
 
@@ -142,20 +170,21 @@ pub fn load(input: &Input) -> Result<Loaded, Failure> {
     }
 }
 
+/// The draws that the command line asks for.
+pub fn overrides(draws: &Draws) -> Overrides {
+    let draw = draws.draw.as_deref().and_then(Marginal::from_name);
+    Overrides { samples: draws.samples, seed: draws.seed, draw }
+}
+
 /// The scenario with the draws that the command line asks for.
 pub fn with_draws(loaded: Loaded, draws: &Draws) -> Scenario {
     let mut scenario = loaded.scenario;
-    let plan = &mut scenario.plan;
-    plan.samples = draws.samples.unwrap_or(plan.samples);
-    plan.seed = draws.seed.unwrap_or(plan.seed);
-    if let Some(draw) = draws.draw.as_deref().and_then(Marginal::from_name) {
-        plan.draw = draw;
-    }
+    overrides(draws).apply(&mut scenario.plan);
     scenario
 }
 
 /// The options of the draws as they were given, to be given again: ` --samples 50 --seed 7`.
-pub fn options(draws: &Draws) -> String {
+pub fn options(draws: &Overrides) -> String {
     let mut text = String::new();
     if let Some(samples) = draws.samples {
         text += &format!(" --samples {samples}");
@@ -163,8 +192,8 @@ pub fn options(draws: &Draws) -> String {
     if let Some(seed) = draws.seed {
         text += &format!(" --seed {seed}");
     }
-    if let Some(draw) = &draws.draw {
-        text += &format!(" --draw {draw}");
+    if let Some(draw) = draws.draw {
+        text += &format!(" --draw {}", draw.name());
     }
     text
 }
@@ -181,8 +210,13 @@ pub fn called(input: &Input) -> Option<String> {
 
 /// The folder for the files of a command, made: a bad place is told before the work is done.
 pub fn folder(input: &Input, folder: &Folder) -> Result<PathBuf, Failure> {
+    folder_of(input.scenario.as_deref(), folder)
+}
+
+/// As [`folder`], for a scenario of this name; `None` for the demonstration.
+pub fn folder_of(scenario: Option<&Path>, folder: &Folder) -> Result<PathBuf, Failure> {
     let folder = folder.out.clone().unwrap_or_else(|| {
-        let name = input.scenario.as_deref().unwrap_or(Path::new(DEMONSTRATION_NAME));
+        let name = scenario.unwrap_or(Path::new(DEMONSTRATION_NAME));
         let stem = name.file_stem().map_or_else(|| "scenario".into(), |stem| stem.to_os_string());
         Path::new("stillgate-out").join(stem)
     });

@@ -4,7 +4,7 @@ use std::process::ExitCode;
 
 use super::args::Limiting;
 use super::common::{
-    Failure, INTERRUPTED, called, control, finish, folder, load, options, page, say, with_draws, write,
+    Failure, INTERRUPTED, called, control, finish, folder, load, options, overrides, page, say, with_draws, write,
 };
 use crate::findings::Asked;
 use crate::limit::{self, Parameter, Search};
@@ -56,7 +56,7 @@ fn one(arguments: &Limiting, scenario: &Scenario, search: &Search) -> Result<Exi
     if input.json {
         say(&document)?;
     } else if !input.quiet {
-        let options = options(&arguments.draws);
+        let options = options(&overrides(&arguments.draws));
         let file = folder.join(CASE).display().to_string();
         let called = called(input);
         let page = page(called.as_deref(), &options);
@@ -82,7 +82,12 @@ fn two(arguments: &Limiting, scenario: &Scenario, across: &Search, up: &Search) 
         say(&document)?;
     } else if !input.quiet {
         let called = called(input);
-        say(&text::limit_map(scenario, &asked, &report, &page(called.as_deref(), &options(&arguments.draws))))?;
+        say(&text::limit_map(
+            scenario,
+            &asked,
+            &report,
+            &page(called.as_deref(), &options(&overrides(&arguments.draws))),
+        ))?;
     }
     bundle.add("limit-map.json", document);
     write(&bundle, &folder, input.quiet || input.json)?;

@@ -4,6 +4,7 @@ mod args;
 mod check;
 mod common;
 mod limit;
+mod merge;
 mod review;
 mod run;
 mod states;
@@ -30,6 +31,7 @@ pub fn main() -> ExitCode {
         Command::Review(it) => review::run(&it),
         Command::Run(it) => run::run(&it),
         Command::Sweep(it) => sweep::run(&it),
+        Command::Merge(it) => merge::run(&it),
         Command::Limit(it) => limit::run(&it),
         Command::States(it) => states::run(&it),
         Command::Check(it) => check::run(&it),

@@ -2,16 +2,20 @@
 
 use std::process::ExitCode;
 
-use super::args::Sweeping;
+use super::args::Reviewing;
 use super::common::{
-    Failure, INTERRUPTED, called, code, control, finish, folder, load, options, page, program, say, with_draws, write,
+    Failure, INTERRUPTED, called, code, control, finish, folder, load, options, overrides, page, program, say,
+    with_draws, write,
 };
+use crate::output::text::Page;
 use crate::output::{bundle, json, text};
 use crate::review;
 
-pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
+pub fn run(arguments: &Reviewing) -> Result<ExitCode, Failure> {
+    let Reviewing { sweeping: arguments, search } = arguments;
     let input = &arguments.input;
-    let scenario = with_draws(load(input)?, &arguments.draws);
+    let mut scenario = with_draws(load(input)?, &arguments.draws);
+    scenario.plan.search = search.unwrap_or(scenario.plan.search);
     let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(input.quiet, "review");
     let program = program(&scenario, &control)?;
@@ -23,7 +27,10 @@ pub fn run(arguments: &Sweeping) -> Result<ExitCode, Failure> {
     if input.json {
         say(&json::review(&scenario, &review))?;
     } else if !input.quiet {
-        say(&text::review(&scenario, &review, &page(called(input).as_deref(), &options(&arguments.draws))))?;
+        let (called, options) = (called(input), options(&overrides(&arguments.draws)));
+        let into = folder.display().to_string();
+        let page = Page { folder: &into, ..page(called.as_deref(), &options) };
+        say(&text::review(&scenario, &review, &page))?;
     }
     let bundle = bundle::of_review(&scenario, &review);
     bundle::clear_pictures(&folder, &bundle);

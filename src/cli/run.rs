@@ -4,7 +4,9 @@ use std::path::Path;
 use std::process::ExitCode;
 
 use super::args::Running;
-use super::common::{Failure, called, control, finish, folder, load, options, page, program, say, with_draws, write};
+use super::common::{
+    Failure, called, control, finish, folder, load, options, overrides, page, program, say, with_draws, write,
+};
 use crate::circuit::NetId;
 use crate::delay::Marginal;
 use crate::findings::Asked;
@@ -34,7 +36,12 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     if input.json {
         say(&document)?;
     } else if !input.quiet {
-        say(&text::run(&scenario, &asked, &report, &page(called(input).as_deref(), &options(&arguments.draws))))?;
+        say(&text::run(
+            &scenario,
+            &asked,
+            &report,
+            &page(called(input).as_deref(), &options(&overrides(&arguments.draws))),
+        ))?;
     }
     let mut bundle = bundle::of_run(&scenario, &asked, &report, nets);
     let case = bundle::safe(&report.which.words());

@@ -101,8 +101,9 @@ fn tracked(rho: Billionths, own: u64, common: u64) -> u64 {
         rho if rho >= Billionths::ONE.0 => common,
         _ => {
             let rho = rho.as_f64();
-            let score =
-                libm::sqrt(rho) * normal_quantile(unit(common)) + libm::sqrt(1.0 - rho) * normal_quantile(unit(own));
+            // the middle of the last cell is no float: it rounds to 1, whose score is no number
+            let normal = |u: u64| normal_quantile(unit(u).min(1.0 - f64::EPSILON / 2.0));
+            let score = libm::sqrt(rho) * normal(common) + libm::sqrt(1.0 - rho) * normal(own);
             // the cast stays below 2^64 by itself
             (normal_distribution(score) * 18_446_744_073_709_551_616.0) as u64
         }
@@ -131,6 +132,8 @@ mod tests {
                 }
             }
         }
+        let [least, greatest] = [0, u64::MAX].map(|u| tracked(Billionths::nearest(0.5), u, u));
+        assert!(least < 1 << 11 && greatest > u64::MAX - (1 << 11), "{least} {greatest}");
         // a score of two equal numbers: Φ((√0.5 + √0.5)·Φ⁻¹(Φ(1))) = Φ(√2) = 0.92135 [computed]
         let phi_1 = (0.841_344_746_068_542_9 * 18_446_744_073_709_551_616.0) as u64;
         let u = tracked(Billionths::nearest(0.5), phi_1, phi_1) as f64 / 18_446_744_073_709_551_616.0;

@@ -9,7 +9,8 @@ use std::collections::VecDeque;
 use std::marker::PhantomData;
 
 use super::agenda::{Agenda, Due};
-use super::observer::{Closing, End, Finish, Hit, Observer, Opening};
+use super::firing::Firing;
+use super::observer::{Cancelled, Closing, End, Finish, Hit, Observer, Opening, Site};
 use super::plan::{Kind, Plan, Rule};
 use super::queue::Queue;
 use super::recovery::{age, recovering};
@@ -22,10 +23,12 @@ use crate::time::{Span, Time};
 
 use super::level::Level;
 
-/// How many events may be pending at one node.
+/// How many events may be pending at one node, and whether a gate has a delay of its own for each.
 pub trait Pending {
     /// More than one?
     const MANY: bool;
+    /// May firings of one gate differ?
+    const ANEW: bool = false;
 }
 
 /// Inertial gates and no wires: one pending event a gate.
@@ -36,12 +39,21 @@ pub struct One;
 #[derive(Clone, Copy, Debug)]
 pub struct Many;
 
+/// Lists, and a delay for each firing: a gate's delays in its node are those of the event that it scheduled last.
+#[derive(Clone, Copy, Debug)]
+pub struct Anew;
+
 impl Pending for One {
     const MANY: bool = false;
 }
 
 impl Pending for Many {
     const MANY: bool = true;
+}
+
+impl Pending for Anew {
+    const MANY: bool = true;
+    const ANEW: bool = true;
 }
 
 /// A gate or a wire end. A gate has an event pending if `next != out` (one a node) or its list is not empty (many).
@@ -79,6 +91,7 @@ pub struct Kernel<L: Level, Q, P, T> {
     later: Vec<VecDeque<Event<L, T>>>,
     /// For each gate the previous change of its output as computed, also if it vanished; empty without involution.
     previous: Vec<Option<i128>>,
+    firing: Firing,
     recurrence: Recurrence,
     agenda: Agenda,
     due: Due,
@@ -127,6 +140,7 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             queue: Q::new(nodes),
             later: if P::MANY { vec![VecDeque::new(); nodes] } else { Vec::new() },
             previous: if plan.has_involution() { vec![None; plan.gates as usize] } else { Vec::new() },
+            firing: Firing::default(),
             recurrence: Recurrence::new(&plan.circuit),
             agenda: Agenda::default(),
             due: Due::default(),
@@ -196,6 +210,9 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         }
         for (node, delay) in self.nodes[gates..].iter_mut().zip(&instance.delays.wire) {
             node.delay = delay.map(Span::fs);
+        }
+        if P::ANEW {
+            self.firing.reset(instance);
         }
         self.recurrence.reset();
         self.agenda.reset(&plan.stimulus, instance);
@@ -471,12 +488,24 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             let delay = node.next.delay(&node.delay);
             let age = at + delay - node.due;
             self.queue.remove(gate, node.due);
+            observer.cancel(&Cancelled {
+                at: Time::from_fs(at),
+                site: Site::Gate(GateId(gate)),
+                new: node.next.value(),
+                since: Time::from_fs(at - age),
+                due: Time::from_fs(node.due),
+                cause: node.tag,
+                by: tag,
+            });
             if 0 < age {
                 observer.swallow(Time::from_fs(at), GateId(gate), Span::from_fs(age), Span::from_fs(delay));
             }
         }
         node.next = value;
         if value != node.out {
+            if P::ANEW {
+                node.delay = self.firing.ask(gate);
+            }
             node.due = at + value.delay(&node.delay);
             node.tag = tag;
             self.queue.insert(gate, node.due);
@@ -487,8 +516,22 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
     fn schedule<O: Observer<Tag = T>>(&mut self, plan: &Plan, index: u32, value: L, at: u64, tag: T, observer: &mut O) {
         let node = &mut self.nodes[index as usize];
         let list = &mut self.later[index as usize];
+        if P::ANEW && index < plan.gates {
+            node.delay = self.firing.ask(index);
+        }
         let before = list.front().map(|event| event.due);
         let mut swallow = |gone: Option<Event<L, T>>| {
+            if let Some(gone) = gone {
+                observer.cancel(&Cancelled {
+                    at: Time::from_fs(at),
+                    site: plan.site(index),
+                    new: gone.value.value(),
+                    since: Time::from_fs(gone.since),
+                    due: Time::from_fs(gone.due),
+                    cause: gone.tag,
+                    by: tag,
+                });
+            }
             if let Some(gone) = gone.filter(|gone| index < plan.gates && gone.since < at) {
                 let (age, delay) = (Span::from_fs(at - gone.since), Span::from_fs(gone.due - gone.since));
                 observer.swallow(Time::from_fs(at), GateId(index), age, delay);
@@ -661,19 +704,23 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
     #[cold]
     fn look_for_recurrence(&mut self, plan: &Plan) {
         let (nodes, later, previous, now) = (&self.nodes, &self.later, &self.previous, self.now);
+        let firing = &self.firing;
         let pending = |index: u32, into: &mut Vec<Rest>| {
             let node = &nodes[index as usize];
             if P::MANY && node.kind.is_listed() {
                 into.extend(later[index as usize].iter().map(|event| (index, event.due - now, event.value.value())));
                 if node.kind.rule == Rule::Involution {
-                    into.push((index, age(plan.figure(index), &node.delay, previous[index as usize], now), Value::X));
+                    // what its age alters are the delays to come
+                    let delay = if P::ANEW { firing.ahead(index) } else { node.delay };
+                    into.push((index, age(plan.figure(index), &delay, previous[index as usize], now), Value::X));
                 }
             } else if node.next != node.out {
                 into.push((index, node.due - now, node.next.value()));
             }
         };
         let value = |index: u32| nodes[index as usize].out.value();
-        self.recurrence.end_batch(now, &value, &pending, &|index| NetId(plan.inputs + index));
+        let own = |index: u32| if P::ANEW { firing.own(index) } else { 0 };
+        self.recurrence.end_batch(now, &value, &pending, &own, &|index| NetId(plan.inputs + index));
     }
 }
 

@@ -3,6 +3,7 @@
 //! The engine gives changes and windows to an [`Observer`] and knows no hazard and no rule.
 
 mod agenda;
+mod firing;
 mod kernel;
 mod level;
 mod observer;
@@ -14,12 +15,12 @@ mod trace;
 
 use std::sync::Arc;
 
-use kernel::{Kernel, Many, One};
+use kernel::{Anew, Kernel, Many, One};
 use level::{Bit, Ternary};
-pub use observer::{Closing, Deaf, End, Finish, Hit, Observer, Opening};
+pub use observer::{Cancelled, Closing, Deaf, End, Finish, Hit, Observer, Opening, Site};
 use plan::Plan;
 use queue::{Heap, Sorted};
-pub use trace::{Change, Link, Trace, Window};
+pub use trace::{Arrival, Change, Link, Lost, Trace, Window};
 
 use crate::control::Control;
 use crate::instance::Instance;
@@ -82,7 +83,7 @@ impl Program {
             (true, false, false) => Core::TernaryHeapOne(Kernel::new(&plan)),
             (true, false, true) => Core::TernaryHeapMany(Kernel::new(&plan)),
         };
-        Machine { plan, core }
+        Machine { plan, core, anew: None, choice: (self.ternary, sorted) }
     }
 }
 
@@ -90,6 +91,10 @@ impl Program {
 pub struct Machine<T> {
     plan: Arc<Plan>,
     core: Core<T>,
+    /// For cases whose firings differ; made when the first of them comes.
+    anew: Option<Core<T>>,
+    /// Three values? Sorted list?
+    choice: (bool, bool),
 }
 
 enum Core<T> {
@@ -101,6 +106,10 @@ enum Core<T> {
     TernarySortedMany(Kernel<Ternary, Sorted, Many, T>),
     TernaryHeapOne(Kernel<Ternary, Heap, One, T>),
     TernaryHeapMany(Kernel<Ternary, Heap, Many, T>),
+    BitSortedAnew(Kernel<Bit, Sorted, Anew, T>),
+    BitHeapAnew(Kernel<Bit, Heap, Anew, T>),
+    TernarySortedAnew(Kernel<Ternary, Sorted, Anew, T>),
+    TernaryHeapAnew(Kernel<Ternary, Heap, Anew, T>),
 }
 
 impl<T: Copy + Default> Machine<T> {
@@ -108,7 +117,16 @@ impl<T: Copy + Default> Machine<T> {
     /// [`Observer::finish`].
     pub fn run<O: Observer<Tag = T>>(&mut self, instance: &Instance, control: &Control, observer: &mut O) -> bool {
         let plan = &*self.plan;
-        match &mut self.core {
+        let core = match instance.firings {
+            None => &mut self.core,
+            Some(_) => self.anew.get_or_insert_with(|| match self.choice {
+                (false, true) => Core::BitSortedAnew(Kernel::new(plan)),
+                (false, false) => Core::BitHeapAnew(Kernel::new(plan)),
+                (true, true) => Core::TernarySortedAnew(Kernel::new(plan)),
+                (true, false) => Core::TernaryHeapAnew(Kernel::new(plan)),
+            }),
+        };
+        match core {
             Core::BitSortedOne(kernel) => kernel.run(plan, instance, control, observer),
             Core::BitSortedMany(kernel) => kernel.run(plan, instance, control, observer),
             Core::BitHeapOne(kernel) => kernel.run(plan, instance, control, observer),
@@ -117,6 +135,10 @@ impl<T: Copy + Default> Machine<T> {
             Core::TernarySortedMany(kernel) => kernel.run(plan, instance, control, observer),
             Core::TernaryHeapOne(kernel) => kernel.run(plan, instance, control, observer),
             Core::TernaryHeapMany(kernel) => kernel.run(plan, instance, control, observer),
+            Core::BitSortedAnew(kernel) => kernel.run(plan, instance, control, observer),
+            Core::BitHeapAnew(kernel) => kernel.run(plan, instance, control, observer),
+            Core::TernarySortedAnew(kernel) => kernel.run(plan, instance, control, observer),
+            Core::TernaryHeapAnew(kernel) => kernel.run(plan, instance, control, observer),
         }
     }
 }

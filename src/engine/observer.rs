@@ -23,12 +23,50 @@ pub trait Observer {
     }
     /// A gate with this delay cancelled an event this long after it was scheduled (0 < age < delay).
     fn swallow(&mut self, _at: Time, _gate: GateId, _age: Span, _delay: Span) {}
+    /// A pending event of a gate or a wire is cancelled, for whatever reason and however old it is.
+    fn cancel(&mut self, _cancelled: &Cancelled<Self::Tag>) {}
     /// All changes of one instant have been told.
     fn batch(&mut self, _at: Time) {}
     /// A window ends.
     fn close(&mut self, _closing: &Closing<'_>) {}
     /// The run ends.
     fn finish(&mut self, _finish: &Finish<'_>) {}
+}
+
+/// Where an event is pending.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Site {
+    /// At a gate's output.
+    Gate(GateId),
+    /// At the end of a wire.
+    Wire(WireId),
+}
+
+/// An event that was cancelled before it came. `T` links events to what led to them.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Cancelled<T> {
+    /// When it was cancelled.
+    pub at: Time,
+    /// Where it was pending.
+    pub site: Site,
+    /// The value that it would have brought.
+    pub new: Value,
+    /// When it was scheduled.
+    pub since: Time,
+    /// When it would have come.
+    pub due: Time,
+    /// What led to it: a change in the batch that scheduled it.
+    pub cause: T,
+    /// What led to its end: a change in the batch that cancelled it.
+    pub by: T,
+}
+
+impl<T> Cancelled<T> {
+    /// The same with other links.
+    pub fn linked<U>(&self, link: impl Fn(&T) -> U) -> Cancelled<U> {
+        let Cancelled { at, site, new, since, due, .. } = *self;
+        Cancelled { at, site, new, since, due, cause: link(&self.cause), by: link(&self.by) }
+    }
 }
 
 /// How a window begins.
@@ -190,6 +228,11 @@ impl<A: Observer, B: Observer<Tag = ()>> Observer for (A, B) {
     fn swallow(&mut self, at: Time, gate: GateId, age: Span, delay: Span) {
         self.0.swallow(at, gate, age, delay);
         self.1.swallow(at, gate, age, delay);
+    }
+
+    fn cancel(&mut self, cancelled: &Cancelled<A::Tag>) {
+        self.0.cancel(cancelled);
+        self.1.cancel(&cancelled.linked(|_| ()));
     }
 
     fn batch(&mut self, at: Time) {

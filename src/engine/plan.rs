@@ -2,7 +2,8 @@
 
 use std::sync::Arc;
 
-use crate::circuit::{Circuit, Compiled, GateId, NetId};
+use super::observer::Site;
+use crate::circuit::{Circuit, Compiled, GateId, NetId, WireId};
 use crate::delay::Filter;
 use crate::instance::Instance;
 use crate::logic::{Bits, State, Value};
@@ -163,6 +164,11 @@ impl Plan {
     /// The net that a wire comes from.
     pub(super) fn wire_source(&self, wire: usize) -> NetId {
         self.circuit.wires()[wire].0
+    }
+
+    /// The gate or wire that a node is.
+    pub(super) fn site(&self, node: u32) -> Site {
+        node.checked_sub(self.gates).map_or(Site::Gate(GateId(node)), |wire| Site::Wire(WireId(wire)))
     }
 
     /// The net of the gate that a node belongs to.

@@ -4,7 +4,8 @@
 //! the batch that brings the count to or past 64, 128, 256, … the block's configuration (values, pending events with
 //! their remaining times) is noted, each note replacing the one before. The block has recurred at the first later batch
 //! that reproduces the note. A batch with the noted values but other remaining times is a pass; the hundredth pass of
-//! one note ends it: oscillating, not exactly periodic.
+//! one note ends it: oscillating, not exactly periodic. No batch reproduces a note if since then a gate of the block has
+//! scheduled an event whose delay is its own, whatever the remaining times: nothing says that the same follows again.
 
 use crate::circuit::{Circuit, NetId};
 use crate::logic::Value;
@@ -30,6 +31,8 @@ pub(super) struct Recurred {
 #[derive(Clone, Debug, Default)]
 struct Note {
     active: bool,
+    /// How many events with delays of their own the block had scheduled.
+    own: u64,
     at: u64,
     values: Vec<Value>,
     pending: Vec<Rest>,
@@ -189,13 +192,14 @@ impl Recurrence {
     }
 
     /// Looks at the blocks that moved in the batch at `now`. `value` gives a node's value, `pending` appends a node's
-    /// pending events in order.
+    /// pending events in order; `own` counts the events with delays of their own that a node has scheduled.
     #[cold]
     pub(super) fn end_batch(
         &mut self,
         now: u64,
         value: &impl Fn(u32) -> Value,
         pending: &impl Fn(u32, &mut Vec<Rest>),
+        own: &impl Fn(u32) -> u64,
         net_of: &impl Fn(u32) -> NetId,
     ) {
         self.batch += 1;
@@ -203,7 +207,7 @@ impl Recurrence {
         // of blocks that recur in one batch the lower number counts as the first
         touched.sort_unstable();
         for block in &touched {
-            self.look(*block, now, value, pending, net_of);
+            self.look(*block, now, value, pending, own, net_of);
         }
         self.touched = touched;
         self.touched.clear();
@@ -215,6 +219,7 @@ impl Recurrence {
         now: u64,
         value: &impl Fn(u32) -> Value,
         pending: &impl Fn(u32, &mut Vec<Rest>),
+        own: &impl Fn(u32) -> u64,
         net_of: &impl Fn(u32) -> NetId,
     ) {
         let b = block as usize;
@@ -234,7 +239,7 @@ impl Recurrence {
                     .map(|(node, count)| (net_of(*node), count & !DIFFERS))
                     .collect()
             };
-            let found = if rest == note.pending {
+            let found = if rest == note.pending && note.own == members.iter().map(|node| own(*node)).sum::<u64>() {
                 Some(Recurred { period: Span::from_fs(now - note.at), range: None, moving: moving(note) })
             } else {
                 let gap = now - note.last_pass;
@@ -261,6 +266,7 @@ impl Recurrence {
                 self.next_note[b] *= 2;
             }
             note.active = true;
+            note.own = members.iter().map(|node| own(*node)).sum();
             note.at = now;
             note.values.clear();
             note.values.extend(members.iter().map(|node| value(*node)));

@@ -1,7 +1,7 @@
 //! The one list of transitions in the program; only single runs keep one.
 
 use crate::circuit::{NetId, WireId};
-use crate::engine::{Closing, End, Finish, Observer};
+use crate::engine::{Cancelled, Closing, End, Finish, Observer, Opening};
 use crate::logic::{State, Value};
 use crate::time::{Span, Time};
 
@@ -12,6 +12,12 @@ pub struct Trace {
     pub start: State,
     /// Transitions of nets, in order; those of one instant form a batch.
     pub changes: Vec<Change>,
+    /// Changes that arrived at the ends of wires, in order.
+    pub arrivals: Vec<Arrival>,
+    /// Events that were cancelled, in order.
+    pub lost: Vec<Lost>,
+    /// Batches so far.
+    pub batches: u32,
     /// The windows, in order.
     pub windows: Vec<Window>,
     /// The last instant that was looked at.
@@ -31,8 +37,37 @@ pub struct Change {
     pub net: NetId,
     /// Its new value.
     pub new: Value,
-    /// The change that led to it, by index; `None` for inputs and for what a power-up state led to.
+    /// The change that led to it, by index: in the batch that scheduled it, or, where it came over a wire, the change
+    /// that the wire carried. `None` for inputs and for what a power-up state led to.
     pub cause: Option<u32>,
+    /// The arrival, by index, if the change that led to it came over a wire.
+    pub through: Option<u32>,
+    /// The batch, counted from 0. There may be several at one instant.
+    pub batch: u32,
+}
+
+/// A change that arrived at the end of a wire.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Arrival {
+    /// When.
+    pub at: Time,
+    /// Which wire.
+    pub wire: WireId,
+    /// The value that arrived.
+    pub new: Value,
+    /// The change that it carried, by index.
+    pub cause: Option<u32>,
+    /// The batch, counted from 0.
+    pub batch: u32,
+}
+
+/// An event that was cancelled, in this batch.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Lost {
+    /// What was cancelled, and what led to it and to its end.
+    pub event: Cancelled<Link>,
+    /// The batch in which it was cancelled, counted from 0.
+    pub batch: u32,
 }
 
 /// One window of a run.
@@ -40,6 +75,14 @@ pub struct Change {
 pub struct Window {
     /// The moment that names it.
     pub moment: u32,
+    /// All moments that fall together here, that one first.
+    pub moments: Vec<u32>,
+    /// The inputs that its steps lead to another value, or that bounce.
+    pub inputs: Vec<NetId>,
+    /// Its first batch.
+    pub batch: u32,
+    /// The state before it.
+    pub before: State,
     /// When it began.
     pub start: Time,
     /// The last input change of its step.
@@ -58,9 +101,17 @@ pub struct Window {
     pub moving: Vec<(NetId, u32)>,
 }
 
-/// The index of a change plus one; 0 for none.
-#[derive(Clone, Copy, Debug, Default)]
-pub struct Link(u32);
+/// What led to an event, by its index in the trace.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Hash, PartialOrd, Ord)]
+pub enum Link {
+    /// The state at power-up.
+    #[default]
+    Start,
+    /// A change of a net.
+    Change(u32),
+    /// A change that arrived at the end of a wire.
+    Arrival(u32),
+}
 
 impl Observer for Trace {
     type Tag = Link;
@@ -69,27 +120,60 @@ impl Observer for Trace {
         *self = Trace { start: state.clone(), ..Trace::default() };
     }
 
-    fn change(&mut self, at: Time, net: NetId, new: Value, cause: Link) -> Link {
-        self.changes.push(Change { at, net, new, cause: cause.0.checked_sub(1) });
-        Link(self.changes.len() as u32)
+    fn open(&mut self, opening: &Opening<'_>) {
+        self.windows.push(Window {
+            moment: opening.moments[0],
+            moments: opening.moments.to_vec(),
+            inputs: opening.inputs.to_vec(),
+            batch: self.batches,
+            before: opening.state.clone(),
+            start: opening.at,
+            settle_from: opening.settle_from,
+            stop: opening.at,
+            began_at_rest: opening.at_rest,
+            end: End::Cut,
+            settling: None,
+            state: opening.state.clone(),
+            moving: Vec::new(),
+        });
     }
 
-    fn arrival(&mut self, _at: Time, _wire: WireId, _new: Value, cause: Link) -> Link {
-        cause
+    fn change(&mut self, at: Time, net: NetId, new: Value, cause: Link) -> Link {
+        let (cause, through) = match cause {
+            Link::Start => (None, None),
+            Link::Change(change) => (Some(change), None),
+            Link::Arrival(arrival) => (self.arrivals[arrival as usize].cause, Some(arrival)),
+        };
+        self.changes.push(Change { at, net, new, cause, through, batch: self.batches });
+        Link::Change(self.changes.len() as u32 - 1)
+    }
+
+    fn arrival(&mut self, at: Time, wire: WireId, new: Value, cause: Link) -> Link {
+        let cause = match cause {
+            Link::Change(change) => Some(change),
+            // a wire reads a net, and carries nothing but its changes
+            Link::Start | Link::Arrival(_) => None,
+        };
+        self.arrivals.push(Arrival { at, wire, new, cause, batch: self.batches });
+        Link::Arrival(self.arrivals.len() as u32 - 1)
+    }
+
+    fn cancel(&mut self, cancelled: &Cancelled<Link>) {
+        self.lost.push(Lost { event: *cancelled, batch: self.batches });
+    }
+
+    fn batch(&mut self, _at: Time) {
+        self.batches += 1;
     }
 
     fn close(&mut self, closing: &Closing<'_>) {
-        self.windows.push(Window {
-            moment: closing.moment,
-            start: closing.start,
-            settle_from: closing.settle_from,
-            stop: closing.at,
-            began_at_rest: closing.began_at_rest,
-            end: closing.end,
-            settling: (closing.end == End::Settled).then(|| closing.settling_time()),
-            state: closing.state.clone(),
-            moving: closing.moving.to_vec(),
-        });
+        if let Some(window) = self.windows.last_mut() {
+            window.stop = closing.at;
+            window.end = closing.end;
+            window.settling = (closing.end == End::Settled).then(|| closing.settling_time());
+            window.state.copy_from(closing.state);
+            window.moving = closing.moving.to_vec();
+        }
     }
 
     fn finish(&mut self, finish: &Finish<'_>) {

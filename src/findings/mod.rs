@@ -4,10 +4,12 @@
 //! known from the scenario, whatever the length of a run.
 
 mod asked;
+mod causes;
 mod departure;
 mod judge;
 mod paths;
 mod pulses;
+mod race;
 mod words;
 
 pub use crate::logic::Shape;
@@ -15,4 +17,5 @@ pub use asked::{Asked, Pattern, Question, RuleKey};
 pub use departure::{Against, Departed, Departure};
 pub use judge::{Answers, Judge, Match, Seen, Sink, matches, matches_any};
 pub use paths::{Leg, Path, RacePair};
+pub use race::race_pair;
 pub use words::{Fact, Kind, Measure, Reason, Subject};

@@ -19,16 +19,22 @@ pub(super) struct Groups {
     commons: Vec<u64>,
 }
 
+/// For each gate its group.
+pub(super) fn groups_of(delays: &DelayModel) -> Vec<Option<u32>> {
+    let mut group_of = vec![None; delays.gate.len()];
+    for (number, group) in delays.groups.iter().enumerate() {
+        group.gates.iter().for_each(|gate| group_of[gate.index()] = Some(number as u32));
+    }
+    group_of
+}
+
 impl Groups {
     /// `gates` are those that the quantities of the board's plan belong to, `None` for what is no gate delay.
     pub fn new(delays: &DelayModel, gates: impl Iterator<Item = Option<u32>>) -> Groups {
         if delays.groups.is_empty() {
             return Groups::default();
         }
-        let mut group_of = vec![None; delays.gate.len()];
-        for (number, group) in delays.groups.iter().enumerate() {
-            group.gates.iter().for_each(|gate| group_of[gate.index()] = Some(number as u32));
-        }
+        let group_of = groups_of(delays);
         Groups {
             how: delays.groups.iter().map(|group| group.how).collect(),
             of: gates.map(|gate| group_of[gate? as usize]).collect(),
@@ -53,11 +59,36 @@ impl Groups {
         }
     }
 
+    /// The number of a group on the present board.
+    pub fn common(&self, group: u32) -> u64 {
+        self.commons[group as usize]
+    }
+
     /// The delay of a quantity of the plan at its own number.
     pub fn span(&self, marginal: Marginal, quantity: usize, range: DelayRange, own: u64) -> Span {
-        match self.of.get(quantity).copied().flatten() {
-            Some(group) => self.how[group as usize].draw(marginal, range, own, self.commons[group as usize]),
+        self.span_with(marginal, quantity, range, own, &self.commons)
+    }
+
+    /// The same with these numbers of groups.
+    pub fn span_with(&self, marginal: Marginal, quantity: usize, range: DelayRange, own: u64, commons: &[u64]) -> Span {
+        match self.group_of(quantity) {
+            Some(group) => self.how[group].draw(marginal, range, own, commons[group]),
             None => marginal.quantile(range, own),
         }
+    }
+
+    /// The group of a quantity of the plan.
+    pub fn group_of(&self, quantity: usize) -> Option<usize> {
+        self.of.get(quantity).copied().flatten().map(|group| group as usize)
+    }
+
+    /// How the delays of each group belong together.
+    pub fn how(&self) -> &[Together] {
+        &self.how
+    }
+
+    /// The numbers of the present board.
+    pub fn commons(&self) -> &[u64] {
+        &self.commons
     }
 }

@@ -4,12 +4,16 @@
 //! [`Instance`], so all of them can be run, drawn as a picture, and replayed.
 
 mod bounces;
+mod firings;
 mod groups;
+mod numbers;
 mod perturb;
 mod quantity;
 mod sampler;
 mod strata;
 
+pub use firings::{Anew, Drawn, Firings};
+pub use numbers::{Cases, Numbers};
 pub use perturb::{PERTURBATIONS, Perturbed, Unmovable};
 pub use quantity::{Quantities, Quantity, Target};
 pub use sampler::{LAYOUT, Sampler};
@@ -24,6 +28,8 @@ use crate::time::Span;
 pub struct Instance {
     /// Delays of gates and wires.
     pub delays: Delays,
+    /// Delays of gates that differ from firing to firing; `None`: every firing takes `delays`.
+    pub firings: Option<Firings>,
     /// One a step: `at` from the start; `after`, `rest` and `when`: the wait.
     pub places: Vec<Span>,
     /// For each step, how much later than its placed instant each input of its `set` changes; empty without skew.
@@ -125,6 +131,7 @@ impl Instance {
                 gate: scenario.delays.gate.iter().map(|edges| edges.map(pick)).collect(),
                 wire: scenario.delays.wire.iter().map(|edges| edges.map(pick)).collect(),
             },
+            firings: None,
             places: stimulus.steps.iter().map(|step| place(&step.place)).collect(),
             skews: stimulus
                 .steps

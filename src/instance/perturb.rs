@@ -7,13 +7,16 @@
 //! splits, the other splits the other way round. In perturbation 2 the sizes are those of 1 in reverse, in 4 those of 3,
 //! so that also what can only be moved up comes in both orders.
 //!
+//! Where firings of a gate differ, all of them move together, each edge by its move.
+//!
 //! Of quantity k with reach R, let a = k mod R and r = ⌊k / R⌋. Its size in pair 0 is one more than the place of a in a
 //! fixed permutation of 0 .. R, in pair 2 that of (a + r) mod R in another. Its sign in pair j is bit j of r, turned by a
 //! fixed random bit of a and j. So up to R quantities all sizes differ; and of the first R² (at least 16·R) any two are
 //! moved differently in some pair, even where R is 1.
 
-use super::Instance;
 use super::strata::{half_of, mix, walk};
+use super::{Firings, Instance};
+use crate::circuit::GateId;
 use crate::delay::{Filter, is_causal};
 use crate::scenario::{Place, Scenario};
 use crate::time::Span;
@@ -72,10 +75,19 @@ impl Instance {
         let mut moves =
             Moves { reach: self.reach(scenario)?, pair: (number - 1) % 4, back: number > 4, next: 0, total: 0 };
         let mut instance = self.clone();
-        for edges in instance.delays.gate.iter_mut().chain(&mut instance.delays.wire) {
-            for edge in edges {
-                *edge = shifted(*edge, moves.either());
-            }
+        let mut moved = |edges: &mut [Span; 2]| {
+            edges.each_mut().map(|edge| {
+                let by = moves.either();
+                *edge = shifted(*edge, by);
+                by
+            })
+        };
+        let by: Vec<[i64; 2]> = instance.delays.gate.iter_mut().map(&mut moved).collect();
+        instance.delays.wire.iter_mut().for_each(|edges| {
+            moved(edges);
+        });
+        if let Some(firings) = &mut instance.firings {
+            firings.move_all(&by);
         }
         self.move_steps(scenario, &mut moves, &mut instance);
         for ((clock, case), moved) in scenario.stimulus.clocks.iter().zip(&self.clocks).zip(&mut instance.clocks) {
@@ -91,15 +103,34 @@ impl Instance {
         Ok(Perturbed { instance, reach, total })
     }
 
+    /// The least delay that this case may show at any gate, firing or wire; `None` without any.
+    pub fn least_delay(&self) -> Option<Span> {
+        let gates = (0..self.delays.gate.len()).flat_map(|gate| self.least_of(gate));
+        gates.chain(self.delays.wire.iter().flatten().copied()).min()
+    }
+
+    /// The least `[fall, rise]` of a gate, over all its firings.
+    fn least_of(&self, gate: usize) -> [Span; 2] {
+        let plain = self.delays.gate[gate];
+        match &self.firings {
+            None => plain,
+            Some(Firings::Drawn(drawn)) => drawn.gates[gate].least(),
+            Some(given) => {
+                let own = given.least(GateId(gate as u32)).unwrap_or(plain);
+                [plain[0].min(own[0]), plain[1].min(own[1])]
+            }
+        }
+    }
+
     /// The furthest that times of this case may be moved.
     fn reach(&self, scenario: &Scenario) -> Result<u64, Unmovable> {
-        let all = self.delays.gate.iter().chain(&self.delays.wire).flatten();
-        let least = all.copied().min().unwrap_or(Span::from_fs(LONGEST));
+        let least = self.least_delay().unwrap_or(Span::from_fs(LONGEST));
         let mut reach = (least.fs() / PART).min(FURTHEST);
         if reach == 0 {
             return Err(Unmovable::ShortDelay(least));
         }
-        for (filter, edges) in scenario.delays.filter.iter().zip(&self.delays.gate) {
+        for (gate, filter) in scenario.delays.filter.iter().enumerate() {
+            let edges = self.least_of(gate);
             let shortest = edges[0].min(edges[1]);
             match filter {
                 Filter::Inertial | Filter::Transport => {}
@@ -241,6 +272,6 @@ impl Moves {
 }
 
 /// A delay moved, within what a delay may be.
-fn shifted(span: Span, by: i64) -> Span {
+pub(super) fn shifted(span: Span, by: i64) -> Span {
     Span::from_fs(span.fs().saturating_add_signed(by).clamp(1, LONGEST - 1))
 }

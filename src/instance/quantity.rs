@@ -65,6 +65,8 @@ pub enum Target {
 #[derive(Clone, Debug, Default, PartialEq, Eq)]
 pub struct Quantities {
     /// What a board draws: delays of gates and wires, clock periods.
+    /// Where firings are drawn anew ([`Vary::PerEvent`](crate::scenario::Vary)) no sample draws the delays of gates here: they
+    /// are those of a case without [`Firings`](super::Firings).
     pub board: Vec<Quantity>,
     /// What a sample draws: step places, skew, clock phases, jitter.
     pub sample: Vec<Quantity>,

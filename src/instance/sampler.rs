@@ -15,28 +15,37 @@
 //! | sample | then for each clock: 1 + 2·count | first edge; jitter of each edge |
 //! | sample | then for each gate: 1 | start bit (the top bit) |
 //! | sample | 2^40, then for each input of a step that bounces: 2 + 2·(most pairs) | number of pairs; span; place of each toggle but the last |
+//! | sample | 2^50 + gate | key of the firings of a gate, for `per-event`; see [`Anew::number`](super::Anew::number) |
 //! | 2^64 − 1 | place in the board's stream | key of a quantity's strata, for `hypercube` |
 //! | 2^64 − 2 | place in the sample's stream | likewise |
+//! | 2^64 − 3 | 2^41·question | what a directed search takes by lot |
 //!
 //! What a group does with its number and each delay's own is told at [`Together`](crate::delay::Together), how a number
 //! finds its stratum in `strata.rs`: `hypercube` cuts the range of what a board draws into as many parts as there are
-//! boards in the plan, and of what a sample draws into as many as there are samples. Start bits and bounces are drawn
-//! independently.
+//! boards in the plan, and of what a sample draws into as many as there are samples. Start bits, bounces and firings are
+//! drawn independently.
+//!
+//! With `per-event` the delays of gates take none of the numbers of the board; they stand at typical, and every firing is
+//! drawn by [`Firings`].
 
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
 use super::Instance;
 use super::bounces::Bounces;
-use super::groups::Groups;
+use super::firings::{Anew, Drawn, Firings};
+use super::groups::{Groups, groups_of};
 use super::quantity::{Quantities, Quantity, Target};
 use super::strata::{BOARD_KEYS, SAMPLE_KEYS, Strata};
 use crate::delay::Marginal;
 use crate::logic::Bits;
-use crate::scenario::{Begin, Scenario};
+use crate::scenario::{Begin, Scenario, Vary};
 
 /// The number of the layout above; a result of another layout cannot be merged or replayed.
 pub const LAYOUT: u32 = 1;
+
+/// The first place of the keys of firings in a sample's stream, behind every bounce.
+const KEYS: u64 = 1 << 50;
 
 /// Draws the cases of one scenario, one after the other, without allocating.
 #[derive(Clone, Debug)]
@@ -47,6 +56,8 @@ pub struct Sampler {
     board_plan: Vec<Quantity>,
     sample_plan: Vec<Quantity>,
     groups: Groups,
+    /// What firings are drawn from, with the group of each gate; only for `per-event`.
+    anew: Option<(Drawn, Vec<Option<u32>>)>,
     /// Strata of the quantities of the plans, and of the groups; only for `hypercube`.
     strata: Option<Stratified>,
     bounces: Bounces,
@@ -66,11 +77,15 @@ struct Stratified {
 impl Sampler {
     /// A sampler for the draws of a scenario.
     pub fn new(scenario: &Scenario) -> Sampler {
-        let Quantities { board: board_plan, sample: sample_plan, start_place } = Quantities::of(scenario);
+        let Quantities { board: mut board_plan, sample: sample_plan, start_place } = Quantities::of(scenario);
         let gate_of = |quantity: &Quantity| match quantity.target {
             Target::Gate { gate, .. } | Target::GateBoth(gate) => Some(gate),
             _ => None,
         };
+        let anew = (scenario.plan.vary == Vary::PerEvent).then(|| firings(scenario));
+        if anew.is_some() {
+            board_plan.retain(|quantity| gate_of(quantity).is_none());
+        }
         let groups = Groups::new(&scenario.delays, board_plan.iter().map(gate_of));
         let mut rng = ChaCha8Rng::seed_from_u64(scenario.plan.seed);
         let plan = scenario.plan;
@@ -90,6 +105,7 @@ impl Sampler {
             board_plan,
             sample_plan,
             groups,
+            anew,
             strata,
             bounces: Bounces::new(&scenario.stimulus),
             start_place,
@@ -108,25 +124,81 @@ impl Sampler {
     ///
     /// Quantities that are exact are left as they are, so always refill the same instance, or a typical one.
     pub fn fill(&mut self, sample: u64, into: &mut Instance) {
+        let draw = self.draw;
         let board = self.board_of(sample);
         if self.board != Some(board) {
             self.board = Some(board);
-            let (plan, mut groups) = (std::mem::take(&mut self.board_plan), std::mem::take(&mut self.groups));
-            let strata = self.strata.take();
-            self.rng.set_stream(2 * board);
-            groups.begin(&mut self.rng, strata.as_ref().map(|it| &it.groups), board);
-            let stratum = strata.as_ref().map(|it| (&it.board, board));
-            self.draw_plan(2 * board, &plan, &groups, stratum, into);
-            (self.board_plan, self.groups, self.strata) = (plan, groups, strata);
+            self.draw_board(board, &mut |groups, number, quantity, u| {
+                into.set(quantity, groups.span(draw, number, quantity.range, u));
+            });
         }
-        let (plan, strata) = (std::mem::take(&mut self.sample_plan), self.strata.take());
-        let stratum = strata.as_ref().map(|it| (&it.sample, sample));
-        self.draw_plan(2 * sample + 1, &plan, &Groups::default(), stratum, into);
-        (self.sample_plan, self.strata) = (plan, strata);
+        self.draw_sample(sample, &mut |_, quantity, u| into.set(quantity, draw.quantile(quantity.range, u)));
+        self.fill_rest(sample, into);
+    }
+
+    /// The random numbers that sample `sample` takes for its quantities, those of the board first, and for its groups.
+    pub(super) fn numbers(&mut self, sample: u64) -> (Vec<u64>, Vec<u64>) {
+        let mut own = Vec::with_capacity(self.board_plan.len() + self.sample_plan.len());
+        // the board in an instance is that of the last sample filled
+        self.board = None;
+        self.draw_board(self.board_of(sample), &mut |_, _, _, u| own.push(u));
+        self.draw_sample(sample, &mut |_, _, u| own.push(u));
+        (own, self.groups.commons().to_vec())
+    }
+
+    /// Does a sample draw this? Delays of gates whose firings are drawn anew have no draw of their own.
+    pub(super) fn draws(&self, quantity: &Quantity) -> bool {
+        self.anew.is_none() || !matches!(quantity.target, Target::Gate { .. } | Target::GateBoth(_))
+    }
+
+    /// What has no quantity: bounces, and start bits.
+    pub(super) fn fill_rest(&mut self, sample: u64, into: &mut Instance) {
         self.bounces.draw(&mut self.rng, 2 * sample + 1, self.draw, &mut into.bounces);
+        self.fill_firings(sample, &mut into.firings);
         if self.random_start {
             self.fill_start(sample, &mut into.start);
         }
+    }
+
+    /// Draws the keys of a sample's firings; the board's groups are drawn.
+    fn fill_firings(&mut self, sample: u64, into: &mut Option<Firings>) {
+        let Some((template, group_of)) = &self.anew else { return };
+        if !matches!(into, Some(Firings::Drawn(_))) {
+            *into = Some(Firings::Drawn(Drawn::default()));
+        }
+        let Some(Firings::Drawn(drawn)) = into else { return };
+        drawn.draw = template.draw;
+        drawn.gates.clone_from(&template.gates);
+        self.rng.set_stream(2 * sample + 1);
+        self.rng.set_word_pos(2 * u128::from(KEYS));
+        for (gate, group) in drawn.gates.iter_mut().zip(group_of) {
+            gate.key = self.rng.next_u64();
+            if let (Some((_, common)), Some(group)) = (&mut gate.group, group) {
+                *common = self.groups.common(*group);
+            }
+        }
+    }
+
+    /// The groups of the scenario.
+    pub(super) fn groups(&self) -> &Groups {
+        &self.groups
+    }
+
+    fn draw_board(&mut self, board: u64, each: &mut impl FnMut(&Groups, usize, &Quantity, u64)) {
+        let (plan, mut groups) = (std::mem::take(&mut self.board_plan), std::mem::take(&mut self.groups));
+        let strata = self.strata.take();
+        self.rng.set_stream(2 * board);
+        groups.begin(&mut self.rng, strata.as_ref().map(|it| &it.groups), board);
+        let stratum = strata.as_ref().map(|it| (&it.board, board));
+        self.draw_plan(2 * board, &plan, stratum, |number, quantity, u| each(&groups, number, quantity, u));
+        (self.board_plan, self.groups, self.strata) = (plan, groups, strata);
+    }
+
+    fn draw_sample(&mut self, sample: u64, each: &mut impl FnMut(usize, &Quantity, u64)) {
+        let (plan, strata) = (std::mem::take(&mut self.sample_plan), self.strata.take());
+        let stratum = strata.as_ref().map(|it| (&it.sample, sample));
+        self.draw_plan(2 * sample + 1, &plan, stratum, each);
+        (self.sample_plan, self.strata) = (plan, strata);
     }
 
     /// Draws the start bits of a sample.
@@ -138,14 +210,13 @@ impl Sampler {
         }
     }
 
-    /// Draws the quantities of a plan; `strata` with the number of the draw, where they are stratified.
+    /// Draws the numbers of a plan's quantities; `strata` with the number of the draw, where they are stratified.
     fn draw_plan(
         &mut self,
         stream: u64,
         plan: &[Quantity],
-        groups: &Groups,
         strata: Option<(&Strata, u64)>,
-        into: &mut Instance,
+        mut each: impl FnMut(usize, &Quantity, u64),
     ) {
         /// Up to here it is cheaper to draw and drop than to seek.
         const SKIP: u64 = 16;
@@ -164,8 +235,22 @@ impl Sampler {
             next = quantity.place + 1;
             let u = self.rng.next_u64();
             let u = strata.map_or(u, |(strata, draw)| strata.number(draw, number, u));
-            let span = groups.span(self.draw, number, quantity.range, u);
-            into.set(quantity, span);
+            each(number, quantity, u);
         }
     }
+}
+
+/// What the firings of a scenario are drawn from, still without keys and numbers of groups, and the group of each gate.
+fn firings(scenario: &Scenario) -> (Drawn, Vec<Option<u32>>) {
+    let delays = &scenario.delays;
+    let group_of = groups_of(delays);
+    let gate = |g: usize| Anew {
+        key: 0,
+        ranges: delays.gate[g],
+        one_draw: delays.gate_one_draw[g],
+        group: group_of[g].map(|group| (delays.groups[group as usize].how, 0)),
+        moved: [0; 2],
+    };
+    let gates = (0..delays.gate.len()).map(gate).collect();
+    (Drawn { draw: scenario.plan.draw, gates }, group_of)
 }

@@ -8,10 +8,14 @@ use std::path::{Path, PathBuf};
 use crate::circuit::NetId;
 use crate::findings::{Asked, Kind, Subject};
 use crate::output::flow_map::{self, Map};
+use crate::output::instance::write_instance;
+use crate::output::search::case_files;
 use crate::output::waves::{self, Nets, Picture};
-use crate::output::{charts, flow_tables, json, tables, words};
+use crate::output::{causes, charts, convergence, flow_tables, json, tables, words};
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
+use crate::search::SearchReport;
+use crate::sweep::SweepReport;
 use crate::time::Time;
 
 /// Most findings that get a picture of their failing case.
@@ -93,19 +97,31 @@ pub fn of_run(scenario: &Scenario, asked: &Asked, run: &RunReport, nets: Option<
     let stem = format!("waves-{}", safe(&run.which.words()));
     let mut bundle = Bundle::default();
     let nets = nets.map_or(Nets::All, Nets::These);
-    let picture = Picture { nets, ..Picture::of_run(scenario, asked, run, &stem) };
+    // the paths of the worst finding, if it breaks a rule
+    let worst = run.facts.first().filter(|fact| fact.breaks_rule);
+    let race = worst.and_then(|fact| run.race(scenario, asked, fact));
+    let picture = Picture { nets, race, ..Picture::of_run(scenario, asked, run, &stem) };
     bundle.add_waves(&stem, &picture, run);
     bundle
 }
 
 /// The files of a sweep: settling times, outcomes, findings, rules, conditions if there are any.
-pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::SweepReport) -> Bundle {
+pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Bundle {
+    of_searched(scenario, asked, report, None)
+}
+
+/// The files of a sweep, with what a directed search met.
+fn of_searched(scenario: &Scenario, asked: &Asked, report: &SweepReport, search: Option<&SearchReport>) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("settling.svg", charts::settling(scenario, report));
     bundle.add("settling.csv", tables::settling(scenario, report));
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));
     bundle.add("findings.csv", tables::findings(scenario, asked, report));
-    bundle.add("rules.csv", tables::rules(scenario, report));
+    bundle.add("rules.csv", tables::rules(scenario, report, search));
+    if report.stopped.is_some() {
+        bundle.add("convergence.svg", convergence::svg(scenario, asked, report));
+        bundle.add("convergence.csv", convergence::csv(scenario, asked, report));
+    }
     if let Some(table) = tables::conditions(scenario, asked, report) {
         bundle.add("conditions.csv", table);
     }
@@ -113,7 +129,9 @@ pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &crate::sweep::Sweep
 }
 
 /// The files of a review: `result.json`, `waves-typical`, a `waves-<kind>-<net or pattern>-<step>` for each of the worst
-/// findings whose failing case was run (at most [`MOST_PICTURES`]), the files of the sweep and of the flow table.
+/// findings whose failing case was run (at most [`MOST_PICTURES`]), `causes.csv` and a `case-<kind>-<net or
+/// pattern>-<step>.toml` for each finding that was looked into, `worst-<n>.toml` for the cases that only the directed
+/// search met, the files of the sweep and of the flow table.
 pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("result.json", json::review(scenario, review));
@@ -128,9 +146,11 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     shown.truncate(MOST_PICTURES);
     for (finding, run) in &shown {
         let subject = &review.sweep.findings[*finding].subject;
-        let stem = unique(stem(scenario, &review.asked, subject), &mut stems);
+        let stem = unique(causes::stem(scenario, &review.asked, subject, "waves"), &mut stems);
+        let why = review.why.get(*finding).and_then(Option::as_ref);
         let picture = Picture {
             nets: Nets::Telling,
+            race: why.and_then(|why| why.race.clone()),
             range: around(subject, run),
             ..Picture::of_run(scenario, &review.asked, run, &stem)
         };
@@ -143,7 +163,24 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
             .notes
             .push(format!("{some} of {all} have a picture; run --delays sample:N draws any other (see findings.csv)."));
     }
-    let sweep = of_sweep(scenario, &review.asked, &review.sweep);
+    if let Some(table) = causes::table(scenario, review) {
+        bundle.add("causes.csv", table);
+    }
+    for (file, why) in causes::case_files(scenario, review).into_iter().zip(&review.why) {
+        if let (Some(file), Some(needs)) = (file, why.as_ref().and_then(|why| why.needs.as_ref())) {
+            bundle.add(&file, write_instance(&needs.case, scenario));
+        }
+    }
+    let broken = review.sweep.findings.iter().zip(&review.why).filter(|(finding, _)| finding.breaks_rule);
+    let left = broken.filter(|(_, why)| why.as_ref().is_none_or(|why| why.pull.is_none())).count() as u64;
+    if left > 0 {
+        let left = words::many(left, "finding");
+        bundle.notes.push(format!("{left} that break a rule were not looked into for what they need; the worst were."));
+    }
+    for file in case_files(review) {
+        bundle.add(&file.name, write_instance(file.case, scenario));
+    }
+    let sweep = of_searched(scenario, &review.asked, &review.sweep, review.search.as_ref());
     bundle.files.extend(sweep.files);
     bundle.files.extend(of_states(scenario, &review.states).files);
     bundle
@@ -175,16 +212,6 @@ fn around(subject: &Subject, run: &RunReport) -> Option<(Time, Time)> {
     Some((before, Time::from_fs(to.fs() + length / 12).min(run.trace.end.max(to))))
 }
 
-/// `waves-<kind>-<net or pattern>-<step>`, of letters, digits and dashes.
-fn stem(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
-    let named = words::subject(scenario, asked, subject);
-    let mut parts = vec!["waves".to_string(), safe(named.kind)];
-    parts.extend(named.net.map(safe).or_else(|| named.pattern.as_deref().map(safe)));
-    parts.extend(named.step.map(safe));
-    parts.retain(|part| !part.is_empty());
-    parts.join("-")
-}
-
 /// Letters, digits and single dashes; everything else becomes a dash.
 pub fn safe(text: &str) -> String {
     let mut name = String::new();
@@ -202,7 +229,7 @@ pub fn safe(text: &str) -> String {
 }
 
 /// The stem, or the stem with a number: no two are equal, also where upper and lower case are one.
-fn unique(stem: String, taken: &mut BTreeSet<String>) -> String {
+pub(super) fn unique(stem: String, taken: &mut BTreeSet<String>) -> String {
     let mut name = stem.clone();
     let mut number = 2;
     while !taken.insert(name.to_lowercase()) {
@@ -219,18 +246,24 @@ pub fn prepare(folder: &Path) -> Result<(), WriteError> {
     fs::create_dir_all(folder).map_err(|source| WriteError::Folder { folder: folder.to_path_buf(), source })
 }
 
-/// Takes pictures of findings out of a folder that an earlier review left there and this one does not have: they would be
+/// Takes pictures, cases of findings and worst cases out of a folder that an earlier review left there and this one does not
+/// have: they would be
 /// taken for findings of this one.
 pub fn clear_pictures(folder: &Path, bundle: &Bundle) {
     let ours: BTreeSet<&str> = bundle.files.iter().map(|file| file.name.as_str()).collect();
     let of_a_finding = |name: &str| {
-        let kind = name.strip_prefix("waves-");
+        let kind = name.strip_prefix("waves-").or_else(|| name.strip_prefix("case-"));
         kind.is_some_and(|rest| Kind::ALL.iter().any(|kind| rest.starts_with(&format!("{}-", safe(kind.word())))))
+    };
+    let of_a_search = |name: &str| {
+        let number = name.strip_prefix("worst-").and_then(|rest| rest.strip_suffix(".toml"));
+        number.is_some_and(|number| number.parse::<u32>().is_ok())
     };
     for entry in fs::read_dir(folder).into_iter().flatten().flatten() {
         let name = entry.file_name();
-        if let Some(name) = name.to_str().filter(|name| of_a_finding(name) && !ours.contains(name)) {
-            // what cannot be removed is only an old picture
+        let old = |name: &&str| (of_a_finding(name) || of_a_search(name)) && !ours.contains(name);
+        if let Some(name) = name.to_str().filter(old) {
+            // what cannot be removed is only an old file
             let _ = fs::remove_file(folder.join(name));
         }
     }
@@ -242,7 +275,7 @@ pub fn clear_pictures(folder: &Path, bundle: &Bundle) {
 /// Errors: the folder or a file cannot be written; then no file has been moved into place, unless moving itself failed.
 pub fn write(folder: &Path, files: &[File]) -> Result<(), WriteError> {
     prepare(folder)?;
-    let beside = |file: &File| folder.join(format!(".{}.part", file.name));
+    let beside = |file: &File| beside(&folder.join(&file.name));
     let done = files.iter().try_for_each(|file| {
         fs::write(beside(file), &file.bytes)
             .map_err(|source| WriteError::File { file: folder.join(&file.name), source })
@@ -260,6 +293,43 @@ pub fn write(folder: &Path, files: &[File]) -> Result<(), WriteError> {
         }
     }
     done
+}
+
+/// Puts a file in place such that, whatever happens, either the old one or the whole new one is there: it is written beside
+/// its place, brought to the disk, and then moved.
+///
+/// Errors: the file cannot be written.
+pub fn replace(path: &Path, bytes: &[u8]) -> Result<(), WriteError> {
+    let error = |source| WriteError::File { file: path.to_path_buf(), source };
+    let beside = beside(path);
+    let written = fs::File::create(&beside).and_then(|mut file| {
+        io::Write::write_all(&mut file, bytes)?;
+        file.sync_all()
+    });
+    let moved = written.and_then(|()| fs::rename(&beside, path));
+    if let Err(source) = moved {
+        // what is left over of an attempt that failed; the first error is the one to report
+        let _ = fs::remove_file(&beside);
+        return Err(error(source));
+    }
+    // that the move itself is on the disk is more than every system can do for a folder
+    let folder = path.parent().filter(|it| !it.as_os_str().is_empty()).unwrap_or(Path::new("."));
+    if let Ok(folder) = fs::File::open(folder) {
+        let _ = folder.sync_all();
+    }
+    Ok(())
+}
+
+/// Takes a file away that [`replace`] put in place, and what a killed program may have left beside it.
+pub fn remove(path: &Path) {
+    let _ = fs::remove_file(path);
+    let _ = fs::remove_file(beside(path));
+}
+
+/// Where a file is written before it is moved into place.
+fn beside(path: &Path) -> PathBuf {
+    let name = path.file_name().unwrap_or_default().to_string_lossy();
+    path.with_file_name(format!(".{name}.part"))
 }
 
 #[cfg(test)]

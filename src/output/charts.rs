@@ -14,9 +14,9 @@ use crate::time::{Span, Unit};
 /// Most panels of one chart.
 pub const MOST_PANELS: usize = 12;
 /// Size of a panel, pixels.
-const PANEL: (u32, u32) = (500, 230);
+pub(super) const PANEL: (u32, u32) = (500, 230);
 /// Height of title and notes, pixels.
-const HEAD: u32 = 34;
+pub(super) const HEAD: u32 = 34;
 /// Most bars that get an outline.
 const MOST_OUTLINED: usize = 24;
 /// Font size that the backend turns into the small size of pictures: it divides by 1.24.

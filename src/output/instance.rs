@@ -1,5 +1,7 @@
 //! The file of one concrete case: everything needed to run it again with its scenario.
 
+mod firings;
+
 use std::fmt::Write;
 
 use crate::instance::Instance;
@@ -32,6 +34,9 @@ pub fn write_instance(instance: &Instance, scenario: &Scenario) -> String {
     for gate in circuit.gates() {
         let name = key(circuit.name(circuit.net_of(gate)));
         line(format_args!("{name} = {{ {} }}", edges(instance.delays.gate[gate.index()])));
+    }
+    if let Some(firings) = &instance.firings {
+        line(format_args!("{}", firings::firings(firings, scenario).trim_end()));
     }
     for (w, (net, gate)) in circuit.wires().iter().enumerate() {
         let (from, to) = (quoted(circuit.name(*net)), quoted(circuit.name(circuit.net_of(*gate))));

@@ -6,7 +6,9 @@
 
 mod assumptions;
 pub mod bundle;
+mod causes;
 pub mod charts;
+pub mod convergence;
 pub mod flow_map;
 pub mod flow_tables;
 mod flow_words;
@@ -18,6 +20,8 @@ pub mod limit_map;
 pub mod limit_tables;
 mod limit_words;
 mod measure;
+mod races;
+mod search;
 pub mod tables;
 pub mod text;
 pub mod waves;

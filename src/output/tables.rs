@@ -4,6 +4,7 @@ use crate::findings::{Asked, Reason};
 use crate::output::words::{self, six};
 use crate::review::{Cell, Compared, compare, departure_words};
 use crate::scenario::{Condition, Scenario};
+use crate::search::SearchReport;
 use crate::sweep::{SweepReport, Worst};
 use crate::time::Decimal;
 
@@ -21,7 +22,7 @@ fn or_empty(field: Option<impl ToString>) -> String {
 }
 
 /// A name that may be missing.
-fn name(field: Option<&str>) -> String {
+pub(super) fn name(field: Option<&str>) -> String {
     field.unwrap_or_default().to_string()
 }
 
@@ -140,8 +141,9 @@ pub fn findings(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Str
     })
 }
 
-/// Rules: how often each was judged, broken, not judged and why, and its margin.
-pub fn rules(scenario: &Scenario, report: &SweepReport) -> String {
+/// Rules: how often each was judged, broken, not judged and why, and its margin; with a directed search, in more columns,
+/// the worst margin that it met, its runs and why it ended.
+pub fn rules(scenario: &Scenario, report: &SweepReport, search: Option<&SearchReport>) -> String {
     let unit = scenario.unit;
     write(|to| {
         let mut header: Vec<String> =
@@ -150,8 +152,11 @@ pub fn rules(scenario: &Scenario, report: &SweepReport) -> String {
         header.extend(["judged".to_string(), "broken".to_string()]);
         header.extend(Reason::ALL.iter().map(|reason| format!("not judged: {}", reason.words())));
         header.extend([format!("margin [{unit}]"), "margin_sample".to_string(), "at_most".to_string()]);
+        if search.is_some() {
+            header.extend([format!("searched margin [{unit}]"), "search runs".to_string(), "search ended".to_string()]);
+        }
         to.write_record(&header)?;
-        for rule in &report.rules {
+        for (number, rule) in report.rules.iter().enumerate() {
             let question = &rule.question;
             let mut row = vec![
                 question.rule.word().to_string(),
@@ -171,6 +176,10 @@ pub fn rules(scenario: &Scenario, report: &SweepReport) -> String {
             row.push(or_empty(rule.margin.map(|fs| Decimal::new(fs, unit))));
             row.push(or_empty(rule.margin_sample));
             row.push(or_empty(rule.at_most.map(|it| six(it.share))));
+            if let Some(it) = search.and_then(|search| search.searched.get(number)) {
+                row.push(or_empty(it.margin.map(|fs| Decimal::new(fs, unit))));
+                row.extend([it.runs.to_string(), it.ended.words().to_string()]);
+            }
             to.write_record(&row)?;
         }
         Ok(())

@@ -1,11 +1,13 @@
 //! From numbers to the names and words that every output shares.
 
-use crate::circuit::NetId;
+use crate::circuit::{GateId, NetId};
 use crate::findings::{Asked, Fact, Subject};
-use crate::instance::Which;
+use crate::instance::{Quantity, Target, Which};
+use crate::review::Cut;
 pub(super) use crate::review::grouped as count;
-use crate::scenario::{MomentKind, Scenario};
+use crate::scenario::{MomentKind, Place, Scenario};
 use crate::sweep::{Tie, Worst};
+use crate::time::Span;
 
 /// The label of a moment; `None` at rest before the first step.
 pub(super) fn step(scenario: &Scenario, moment: Option<u32>) -> Option<&str> {
@@ -64,6 +66,55 @@ pub(super) fn subject<'a>(scenario: &'a Scenario, asked: &'a Asked, subject: &Su
             .map(|pattern| pattern.words(&scenario.circuit)),
         net: subject.net.map(|id| net(scenario, id)),
         step: step(scenario, subject.moment),
+    }
+}
+
+/// What a quantity of a case is: `open_lower fall`, `wire a to b rise`, `wait of step 2`, `skew of call in step 2`.
+pub(super) fn quantity(scenario: &Scenario, target: Target) -> String {
+    let (circuit, stimulus) = (&scenario.circuit, &scenario.stimulus);
+    let gate = |gate: u32| circuit.name(circuit.net_of(GateId(gate)));
+    let wire = |wire: u32| {
+        let (from, to) = circuit.wires()[wire as usize];
+        format!("wire {} to {}", circuit.name(from), circuit.name(circuit.net_of(to)))
+    };
+    let edge = |edge: u8| if edge == 0 { "fall" } else { "rise" };
+    let clock = |clock: u32| circuit.name(stimulus.clocks[clock as usize].net);
+    match target {
+        Target::Gate { gate: it, edge: e } => format!("{} {}", gate(it), edge(e)),
+        Target::GateBoth(it) => format!("{} delay", gate(it)),
+        Target::Wire { wire: it, edge: e } => format!("{} {}", wire(it), edge(e)),
+        Target::WireBoth(it) => wire(it),
+        Target::Period(it) => format!("period of {}", clock(it)),
+        Target::High(it) => format!("high of {}", clock(it)),
+        Target::First(it) => format!("first edge of {}", clock(it)),
+        Target::Jitter { clock: it, edge } => format!("jitter of edge {} of {}", edge + 1, clock(it)),
+        Target::Place(it) => {
+            let step = &stimulus.steps[it as usize];
+            let what = if matches!(step.place, Place::At(_)) { "place" } else { "wait" };
+            format!("{what} of {}", the_step(&step.label))
+        }
+        Target::Skew { step, entry } => {
+            let step = &stimulus.steps[step as usize];
+            format!("skew of {} in {}", circuit.name(step.set[entry as usize].0), the_step(&step.label))
+        }
+    }
+}
+
+/// The value of a quantity in fs; jitter counts from no jitter, so it has a sign.
+pub(super) fn value(quantity: &Quantity, span: Span) -> i128 {
+    let middle = match quantity.target {
+        Target::Jitter { .. } => quantity.range.max.fs() / 2,
+        _ => 0,
+    };
+    i128::from(span.fs()) - i128::from(middle)
+}
+
+/// What cut a search, in words.
+pub(super) fn cut(cut: Cut) -> String {
+    match cut {
+        Cut::Runs(runs) => format!("budget of {} ran out", many(runs, "run")),
+        Cut::Events(events) => format!("budget of {} ran out", many(events, "event")),
+        Cut::Interrupted => "interrupted".to_string(),
     }
 }
 

@@ -1,5 +1,7 @@
 //! Files of one concrete case, to be run again with the scenario that they belong to.
 
+mod firings;
+
 use std::ops::Range;
 use std::path::Path;
 use std::sync::Arc;
@@ -16,7 +18,7 @@ use crate::logic::Bits;
 use crate::scenario::{Amount, Begin, Clock, Fault, Place, Said, Scenario};
 use crate::time::{Span, Time, Unit};
 
-const KEYS: [&str; 8] = ["format", "kind", "time_unit", "gates", "wires", "steps", "clocks", "start"];
+const KEYS: [&str; 9] = ["format", "kind", "time_unit", "gates", "firings", "wires", "steps", "clocks", "start"];
 
 /// Names listed in one fault.
 const LISTED: usize = 8;
@@ -78,11 +80,12 @@ impl Case<'_> {
         };
         let case = Case { scenario, unit };
         let gate = case.gates(walk, part("gates"));
+        let firings = case.firings(walk, part("firings"));
         let wire = case.wires(walk, part("wires"));
         let Steps { places, skews, bounces } = case.steps(walk, part("steps"));
         let clocks = case.clocks(walk, part("clocks"));
         let start = case.start(walk, part("start"));
-        Instance { delays: Delays { gate, wire }, places, skews, bounces, clocks, start }
+        Instance { delays: Delays { gate, wire }, firings, places, skews, bounces, clocks, start }
     }
 
     /// An amount in the file's unit.

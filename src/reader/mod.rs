@@ -7,6 +7,7 @@ mod diagnostics;
 mod file;
 mod gates;
 mod instance;
+mod part;
 mod rules;
 mod start;
 mod steps;
@@ -22,9 +23,10 @@ use toml::de::DeTable;
 pub use diagnostics::{Diagnostic, Diagnostics, Related};
 pub use file::{FileError, MAX_BYTES, ReadError};
 pub use instance::{load_instance, read_instance};
+pub use part::{LoadedPart, MAX_PART_BYTES, load_part, read_part, scenario_of};
 
 use crate::delay::Marginal;
-use crate::scenario::{BeginAt, Builder, Fault, Mark, Said, Scenario};
+use crate::scenario::{BeginAt, Builder, Fault, Mark, Said, Scenario, Vary};
 use crate::time::Unit;
 use diagnostics::Placed;
 use walk::{Value, Walk};
@@ -223,8 +225,9 @@ fn limits(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
 }
 
 fn sweep(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
-    const KEYS: [&str; 5] = ["samples", "seed", "tries", "draw", "vary"];
-    let Some(table) = walk.table(value, "write `[sweep]`, then `samples`, `seed`, `tries` or `draw`") else { return };
+    const KEYS: [&str; 6] = ["samples", "seed", "tries", "draw", "vary", "search"];
+    let wanted = "write `[sweep]`, then `samples`, `seed`, `tries`, `draw` or `search`";
+    let Some(table) = walk.table(value, wanted) else { return };
     for (key, value) in table.iter() {
         match key.get_ref().as_ref() {
             "samples" => {
@@ -243,10 +246,14 @@ fn sweep(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
                 }
             }
             "draw" => draw(walk, builder, value),
+            "search" => {
+                if let Some(runs) = walk.integer(value) {
+                    builder.search(runs);
+                }
+            }
             "vary" => {
-                if walk.word(value, &[("per-part", false), ("per-event", true)]) == Some(true) {
-                    let sentence = "vary `per-event`: not analysed yet; each sample draws every delay once".to_string();
-                    builder.not_analysed(Said::at(sentence, walk.mark(key.span())));
+                if let Some(vary) = walk.word(value, &Vary::ALL.map(|vary| (vary.name(), vary))) {
+                    builder.vary(vary);
                 }
             }
             _ => walk.unknown_key(key, &KEYS, "[sweep]"),

@@ -4,8 +4,10 @@
 mod conditions;
 mod contained;
 mod departure;
+mod paths;
 mod report;
 mod single;
+mod sweeping;
 mod ties;
 mod verdict;
 mod why;
@@ -16,18 +18,19 @@ pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, comp
 pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{run_one, states};
+pub use sweeping::{Saved, Stops, Sweeper, sweep};
 pub use verdict::{grouped, verdict, without_draws};
-pub use why::{Away, Needs, Pull, Why};
+pub use why::{Away, Cut, Kept, LOOKED_INTO, Needs, Pull, Pulls, Ranks, Untold, Why, causes, mann_whitney};
 
 use crate::circuit::NetId;
 use crate::control::Control;
-use crate::engine::{Program, Trace};
+use crate::engine::Program;
 use crate::findings::{Asked, Kind, RuleKey};
 use crate::flow::FlowError;
 use crate::instance::Which;
 use crate::scenario::Scenario;
-use crate::statics;
-use crate::sweep::{ConditionReport, SweepReport, conclude, run_samples};
+use crate::search::{SearchReport, search};
+use crate::sweep::{SweepReport, worst_first};
 
 /// Failing cases that a review shows as pictures, worst findings first.
 const SHOWN: usize = 12;
@@ -52,58 +55,6 @@ impl From<FlowError> for ReviewError {
     }
 }
 
-/// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
-/// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows; so
-/// are typical, min and max runs. What only these show is a finding, too, and what exactly equal times have to do with
-/// findings is looked into. Then the same for every condition of the scenario. A cancelled sweep concludes from what was
-/// complete.
-pub fn sweep(
-    scenario: &Scenario,
-    program: &Program,
-    asked: &Asked,
-    threads: usize,
-    control: &Control,
-) -> Result<SweepReport, ReviewError> {
-    let (mut report, runs) = sweep_one(scenario, program, asked, threads, control)?;
-    for (which, trace) in &runs {
-        contained::run(scenario, &format!("the {} run", which.words()), trace, &Control::default())?;
-    }
-    for condition in &scenario.conditions {
-        let under = scenario.under(condition);
-        // where a run may begin does not depend on delays
-        let program = Program::new(&under, &Control::default())
-            .map_err(|_| ReviewError::Contradiction(format!("under condition {} no start is found", condition.name)))?;
-        let (sweep, _) = sweep_one(&under, &program, asked, threads, control)?;
-        report.conditions.push(ConditionReport { condition: condition.clone(), sweep });
-    }
-    Ok(report)
-}
-
-fn sweep_one(
-    scenario: &Scenario,
-    program: &Program,
-    asked: &Asked,
-    threads: usize,
-    control: &Control,
-) -> Result<(SweepReport, Vec<(Which, Trace)>), ReviewError> {
-    let tally = run_samples(scenario, program, asked, 0..scenario.plan.samples, threads, control);
-    let mut report = conclude(scenario, asked, &tally);
-    for window in &report.windows {
-        for outcome in window.outcomes.iter().filter(|outcome| !outcome.state.has_unknown()) {
-            if !statics::is_stable(&scenario.circuit, &outcome.state) {
-                let label = &scenario.stimulus.moments[window.moment as usize].label;
-                return Err(ReviewError::Contradiction(format!(
-                    "after \"{label}\" sample {} settles in a state that is not stable",
-                    outcome.first
-                )));
-            }
-        }
-    }
-    contained::sweep(scenario, &tally, &Control::default())?;
-    let runs = ties::look(scenario, program, asked, &tally, &mut report, control)?;
-    Ok((report, runs))
-}
-
 /// The main job: stable states, typical run, sweep, failing cases, verdict.
 ///
 /// Every failing case is run again by itself and must show what the sweep found.
@@ -116,7 +67,8 @@ pub fn review(
     let asked = Asked::of(scenario);
     let states = states(scenario, control)?;
     let typical = run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?;
-    let sweep = sweep(scenario, program, &asked, threads, control)?;
+    let mut sweep = sweep(scenario, program, &asked, threads, control)?;
+    let search = search_worst(scenario, program, &asked, &mut sweep, threads, control)?;
     let mut shown = Vec::new();
     for index in to_show(&asked, &sweep) {
         let finding = &sweep.findings[index];
@@ -131,8 +83,42 @@ pub fn review(
         shown.push((index, run));
     }
     let verdict = verdict(scenario, &sweep);
-    let why = vec![None; sweep.findings.len()];
-    Ok(Review { asked, states, typical: Some(typical), sweep, shown, why, verdict })
+    let mut why = causes(scenario, program, &asked, &sweep, threads, control)?;
+    paths::fill_races(scenario, program, &asked, &sweep, &shown, &mut why, control);
+    Ok(Review { asked, states, typical: Some(typical), sweep, search, shown, why, verdict })
+}
+
+/// Searches for the worst case of what no draw broke, if the plan says so, and adds what it breaks to the findings. Each
+/// such case is checked against the delay-free view as the draws are.
+fn search_worst(
+    scenario: &Scenario,
+    program: &Program,
+    asked: &Asked,
+    sweep: &mut SweepReport,
+    threads: usize,
+    control: &Control,
+) -> Result<Option<SearchReport>, ReviewError> {
+    if scenario.plan.search == 0 {
+        return Ok(None);
+    }
+    let report = search(scenario, program, asked, sweep, threads, control);
+    let findings = report.findings(sweep);
+    for finding in &findings {
+        let Some(case) = finding.case.as_deref().cloned() else { continue };
+        if let Some(run) = run_one(scenario, program, asked, case, &Control::default()) {
+            contained::run(scenario, "a case of the directed search", &run.trace, &Control::default())?;
+        }
+    }
+    // what typical, min or max shows is told by that, unless it is a tie there
+    for finding in findings {
+        match sweep.findings.iter_mut().find(|old| old.subject == finding.subject && old.breaks_rule) {
+            Some(old) if old.count > 0 || old.tie.is_none() => {}
+            Some(old) => *old = finding,
+            None => sweep.findings.push(finding),
+        }
+    }
+    worst_first(&mut sweep.findings);
+    Ok(Some(report))
 }
 
 /// What makes findings alike: kind, rule and which of several, net.

@@ -7,6 +7,7 @@ use crate::findings::{Against, Asked, Fact, Kind, Reason};
 use crate::flow::Flow;
 use crate::instance::{Instance, Which};
 use crate::logic::Bits;
+use crate::search::SearchReport;
 use crate::sweep::SweepReport;
 
 /// One run, with what was found in it.
@@ -108,8 +109,10 @@ pub struct Review {
     pub states: StatesReport,
     /// The typical run; `None` if the circuit cannot be run yet.
     pub typical: Option<RunReport>,
-    /// The sweep.
+    /// The sweep, with what the search found and no draw showed among its findings.
     pub sweep: SweepReport,
+    /// The directed search with the scenario's own delays; `None` if none was asked for.
+    pub search: Option<SearchReport>,
     /// For some findings (by index in `sweep.findings`) their failing case, run.
     pub shown: Vec<(usize, RunReport)>,
     /// For each finding of the sweep why it happens, where that was looked into.

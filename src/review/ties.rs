@@ -142,7 +142,7 @@ impl Runner<'_> {
             match instance.perturbed(self.scenario, number) {
                 Ok(perturbed) => {
                     let heard = self.run(&perturbed.instance)?;
-                    let least = instance.delays.gate.iter().chain(&instance.delays.wire).flatten().min();
+                    let least = instance.least_delay();
                     // no more than all moves together, and less than any change of what happens would make it
                     let all = perturbed.total.fs().min(least.map_or(0, |least| least.fs() / 2));
                     search.add(Which::Perturbed(Box::new(which.clone()), number), Some(base), heard, Some(all));

@@ -107,6 +107,9 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
         finding.against.as_ref().map(|it| (it, finding.count > 1)),
     );
     if let Some(case) = finding.case.as_deref().filter(|_| finding.count == 0) {
+        if let Which::Given(_) = case {
+            return format!("{what} in no draw of {}, {}", grouped(finding.of), without_draws(case, finding.tie));
+        }
         return format!("{what} in no draw, {}", without_draws(case, finding.tie));
     }
     let equal = if finding.tie == Some(Tie::Vanishes) { " (only with exactly equal times)" } else { "" };
@@ -122,6 +125,7 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
 /// What shows something that no draw shows.
 pub fn without_draws(case: &Which, tie: Option<Tie>) -> String {
     let delays = match case {
+        Which::Given(_) => return "but met by directed search".to_string(),
         Which::Typ | Which::Min | Which::Max => format!("{} delays", case.words()),
         _ => case.words(),
     };

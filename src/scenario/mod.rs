@@ -103,11 +103,45 @@ pub struct Plan {
     pub tries: u64,
     /// How delays spread over their ranges.
     pub draw: Marginal,
+    /// How often the delay of a gate is drawn.
+    pub vary: Vary,
+    /// Runs that a directed search may take for each question; 0: none.
+    pub search: u64,
+}
+
+/// How often the delay of a gate is drawn.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Hash, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Vary {
+    /// Once a board: part differs from part.
+    #[default]
+    PerPart,
+    /// Anew for each event that a gate schedules: jitter. What a group has in common, wires and clock periods stay those of
+    /// the board.
+    PerEvent,
+}
+
+impl Vary {
+    /// All of them, in the order of the documentation.
+    pub const ALL: [Vary; 2] = [Vary::PerPart, Vary::PerEvent];
+
+    /// The name in a scenario.
+    pub const fn name(self) -> &'static str {
+        match self {
+            Vary::PerPart => "per-part",
+            Vary::PerEvent => "per-event",
+        }
+    }
+}
+
+impl Plan {
+    /// Least number of runs that a directed search of one question needs to try its starts and look at what it finds.
+    pub const LEAST_SEARCH: u64 = 50;
 }
 
 impl Default for Plan {
     fn default() -> Plan {
-        Plan { samples: 10_000, seed: 1, tries: 1, draw: Marginal::Uniform }
+        Plan { samples: 10_000, seed: 1, tries: 1, draw: Marginal::Uniform, vary: Vary::PerPart, search: 1_000 }
     }
 }
 

@@ -2,8 +2,10 @@
 
 use std::collections::{BTreeMap, BTreeSet};
 
+use super::lowest::Lowest;
+use super::ranges::Ranges;
 use super::report::{
-    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, TiesSought, WindowReport, Worst,
+    AtMost, Boards, Finding, Fork, Outcome, RuleReport, Settling, SweepReport, TiesSought, WindowReport, Worst,
 };
 use super::seen::Count;
 use super::spread::{self, Spread};
@@ -24,6 +26,18 @@ const BARS: u64 = 60;
 
 /// Draws the conclusions of a tally.
 pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepReport {
+    conclude_after(scenario, asked, tally, 1)
+}
+
+/// The confidence of an interval at one of so many looks, such that intervals hold at all looks together with that of every
+/// interval, 0.95 (see [`looks`](super::looks())).
+pub(super) fn confidence(looks: u64) -> f64 {
+    1.0 - (1.0 - CONFIDENCE) / looks.max(1) as f64
+}
+
+/// Draws the conclusions of a tally at one of so many looks at a growing sweep: its intervals and bounds are as wide as it
+/// takes to hold at whichever look the sweep is stopped.
+pub fn conclude_after(scenario: &Scenario, asked: &Asked, tally: &Tally, looks: u64) -> SweepReport {
     let races: Vec<Race> = tally.windows.iter().enumerate().map(|(m, w)| Race::of(scenario, m as u32, w)).collect();
     let windows = tally.windows.iter().zip(&races).enumerate();
     let windows: Vec<WindowReport> = windows.map(|(m, (w, race))| window(scenario, asked, m as u32, w, race)).collect();
@@ -51,7 +65,7 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
         })
         .collect();
 
-    let judging = Judging { scenario, asked, tally };
+    let judging = Judging { scenario, asked, tally, confidence: confidence(looks) };
     let mut findings: Vec<Finding> =
         tally.facts.iter().map(|(subject, fact)| judging.finding(*subject, fact, judging.judged(subject))).collect();
     for (m, race) in races.iter().enumerate() {
@@ -69,6 +83,7 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
             breaks_rule,
             count: strays.count,
             first: strays.first,
+            lowest: Lowest::default(),
             worst: None,
             boards_failing: 0,
             worst_board: (0, 1),
@@ -91,6 +106,8 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
     for rule in &mut rules {
         rule.at_most = judging.rule_at_most(rule);
     }
+    let breakers = tally.facts.iter().filter(|(_, fact)| fact.breaks_rule);
+    let failing = breakers.map(|(subject, fact)| (*subject, fact.lowest.numbers().to_vec())).collect();
     let at_most = judging.at_most(&windows, &rules, &findings);
     let (unseen, unseen_untold) = judging.unseen();
     SweepReport {
@@ -102,6 +119,9 @@ pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepRepor
         at_most,
         unseen,
         unseen_untold,
+        failing,
+        missing: Ranges::default(),
+        stopped: None,
         conditions: Vec::new(),
         ties: TiesSought::default(),
     }
@@ -132,6 +152,7 @@ struct Race {
     /// Outcomes of races that break the rule, but for those with an alternative that they need not share.
     blamed: BTreeSet<State>,
     non_critical: Option<Strays>,
+    forks: Vec<Fork>,
 }
 
 /// Samples that did not do the commonest thing.
@@ -141,10 +162,16 @@ struct Strays {
     first: u64,
 }
 
+/// Which of several things is the commonest; of equally common ones that of the lower sample.
+fn commonest(counts: &[Count]) -> Option<usize> {
+    let each = counts.iter().enumerate();
+    each.min_by_key(|(_, c)| (std::cmp::Reverse(c.count), c.first)).map(|(i, _)| i)
+}
+
 impl Strays {
-    /// Of several things: all but the commonest; of equally common ones that of the lower sample is the commonest.
+    /// Of several things: all but the commonest.
     fn of(counts: &[Count]) -> Option<Strays> {
-        let commonest = counts.iter().enumerate().min_by_key(|(_, c)| (std::cmp::Reverse(c.count), c.first))?.0;
+        let commonest = commonest(counts)?;
         let others = counts.iter().enumerate().filter(|(i, _)| *i != commonest).map(|(_, c)| c);
         let first = others.clone().map(|c| c.first).min()?;
         Some(Strays { count: others.map(|c| c.count).sum(), first })
@@ -173,7 +200,7 @@ impl Race {
         let alternatives = expected(scenario, moment);
         let forbidden = scenario.rules.critical_race == Permission::Forbidden;
         let mut race = Race::default();
-        for outcomes in groups.values() {
+        for (before, outcomes) in &groups {
             let counts: Vec<Count> = outcomes.iter().map(|(_, count)| *count).collect();
             race.of += counts.iter().map(|c| c.count).sum::<u64>();
             if let [(passage, _)] = outcomes[..] {
@@ -183,6 +210,10 @@ impl Race {
                 continue;
             }
             Strays::join(&mut race.critical, Strays::of(&counts));
+            race.forks.extend(
+                commonest(&counts)
+                    .map(|it| Fork { before: (*before).clone(), commonest: outcomes[it].0.after.clone() }),
+            );
             let states: Vec<&State> = outcomes.iter().map(|(passage, _)| &passage.after).collect();
             if forbidden && !each_has_its_own(&states, &alternatives) {
                 race.breaks_rule = true;
@@ -270,6 +301,7 @@ fn window(scenario: &Scenario, asked: &Asked, moment: u32, tally: &WindowTally, 
         cut: tally.cut,
         began_before_rest: tally.began_before_rest,
         settling: settling(&tally.settling, &tally.cut_after),
+        forks: race.forks.clone(),
     }
 }
 
@@ -324,6 +356,7 @@ struct Judging<'a> {
     scenario: &'a Scenario,
     asked: &'a Asked,
     tally: &'a Tally,
+    confidence: f64,
 }
 
 impl Judging<'_> {
@@ -349,7 +382,7 @@ impl Judging<'_> {
             true => self.tally.boards,
             false => judged,
         };
-        let share = none_in(of, CONFIDENCE).filter(|_| plan.draw.allows_intervals())?;
+        let share = none_in(of, self.confidence).filter(|_| plan.draw.allows_intervals())?;
         Some(AtMost { share, of, boards })
     }
 
@@ -374,7 +407,7 @@ impl Judging<'_> {
         let windows = &self.tally.windows;
         let told = windows.iter().filter(|window| window.orders.total() > 0).count() as u64;
         let each = windows.iter().enumerate();
-        let masses = each.filter_map(|(m, window)| UnseenMass::of(m as u32, window, told, CONFIDENCE));
+        let masses = each.filter_map(|(m, window)| UnseenMass::of(m as u32, window, told, self.confidence));
         // the greatest estimate, of equal ones the greatest bound, of equal ones the first
         let most = masses.fold(None, |most: Option<UnseenMass>, mass| match most {
             Some(most) if (most.estimate, most.upper) >= (mass.estimate, mass.upper) => Some(most),
@@ -404,11 +437,11 @@ impl Judging<'_> {
             share,
             interval: share
                 .filter(|_| !several && plan.draw.allows_intervals())
-                .and_then(|_| clopper_pearson(fact.count, of, CONFIDENCE)),
+                .and_then(|_| clopper_pearson(fact.count, of, self.confidence)),
             boards: (several && !race && !corners).then(|| Boards {
                 of: self.tally.boards,
                 failing: fact.boards_failing,
-                interval: clopper_pearson(fact.boards_failing, self.tally.boards, CONFIDENCE)
+                interval: clopper_pearson(fact.boards_failing, self.tally.boards, self.confidence)
                     .filter(|_| plan.draw.allows_intervals()),
                 mean_share: fact.on_boards.0 as f64 / fact.on_boards.1.max(1) as f64,
                 worst_share: fact.worst_board.0 as f64 / fact.worst_board.1 as f64,

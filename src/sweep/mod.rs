@@ -1,6 +1,14 @@
 //! Many runs: drawing, running, tallying, statistics. Texts say "Monte Carlo, N draws".
 
+mod cases;
 mod conclude;
+mod fits;
+mod looks;
+mod lowest;
+mod pairs;
+mod part;
+mod part_file;
+mod ranges;
 mod report;
 mod run;
 mod seen;
@@ -9,10 +17,16 @@ mod stats;
 mod tally;
 mod unseen;
 
-pub use conclude::{conclude, race_breaks, worst_first};
+pub use cases::{Case, Cases};
+pub use conclude::{conclude, conclude_after, race_breaks, worst_first};
+pub use looks::{Curve, Point, Until, UntilError, looks};
+pub use lowest::KEPT as FAILING;
+pub use part::{Foreign, Overrides, Part, Parts, Refusal};
+pub use part_file::{Damage, FORMAT};
+pub use ranges::Ranges;
 pub use report::{
-    AtMost, Boards, Cause, ConditionReport, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, TiesSought,
-    Unmoved, WindowReport, Worst,
+    AtMost, Boards, Cause, ConditionReport, Finding, Fork, Outcome, RuleReport, Settling, Stopped, SweepReport, Tie,
+    TiesSought, Unmoved, WindowReport, Worst,
 };
 pub use run::run_samples;
 pub use stats::{clopper_pearson, none_in};

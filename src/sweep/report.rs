@@ -1,5 +1,7 @@
 //! What a sweep says, in ids and exact times; names and texts are made where results are written.
 
+use std::collections::BTreeMap;
+
 use crate::engine::Hit;
 use crate::findings::{Against, Kind, Measure, Question, Reason, Subject};
 use crate::instance::{Unmovable, Which};
@@ -7,6 +9,10 @@ use crate::logic::State;
 use crate::scenario::{Condition, Plan};
 use crate::time::Span;
 
+use super::conclude::confidence;
+use super::looks::{Curve, Point, widest};
+use super::ranges::Ranges;
+use super::stats::clopper_pearson;
 use super::unseen::UnseenMass;
 
 /// The result of a sweep.
@@ -30,6 +36,13 @@ pub struct SweepReport {
     pub unseen: Option<UnseenMass>,
     /// For how many windows that cannot be told because there were more orders than are kept.
     pub unseen_untold: u64,
+    /// For what breaks a rule, but for races, the lowest samples that show it, ascending, at most [`FAILING`](super::FAILING).
+    pub failing: BTreeMap<Subject, Vec<u64>>,
+    /// Samples that were asked for and are not in it: it was interrupted, or parts of it are not there. None where it
+    /// stopped by itself.
+    pub missing: Ranges,
+    /// How it stopped when its shares were sure, if it was to; `None` within a condition.
+    pub stopped: Option<Box<Stopped>>,
     /// The same draws under each condition of the scenario; empty within one.
     pub conditions: Vec<ConditionReport>,
     /// How far exactly equal times were looked for.
@@ -67,6 +80,29 @@ pub struct ConditionReport {
     pub condition: Condition,
     /// What its sweep says.
     pub sweep: SweepReport,
+}
+
+/// How a sweep stopped that was to stop when its shares are sure. Its intervals allow for all its looks.
+#[derive(Clone, Debug)]
+pub struct Stopped {
+    /// When it may stop, and what each look saw.
+    pub curve: Curve,
+    /// Looks that were planned.
+    pub looks: u64,
+    /// The widest interval at its end; `None` if there was no share with an interval.
+    pub widest: Option<f64>,
+}
+
+impl Stopped {
+    /// What may be known of a sweep with this curve and so many planned looks.
+    pub fn of(curve: Curve, looks: u64, report: &SweepReport) -> Stopped {
+        Stopped { curve, looks, widest: widest(report) }
+    }
+
+    /// The interval of a share at one of the looks: from, to.
+    pub fn interval(&self, point: &Point) -> Option<(f64, f64)> {
+        clopper_pearson(point.count, point.of, confidence(self.looks))
+    }
 }
 
 /// What was never seen, and how often it happens at most: an upper bound, one-sided, 95 %.
@@ -107,6 +143,17 @@ pub struct WindowReport {
     pub began_before_rest: u64,
     /// Settling time; `None` if no window settled or was cut.
     pub settling: Option<Settling>,
+    /// Every state of rest from which its step led to more than one state, with the commonest of them; in order.
+    pub forks: Vec<Fork>,
+}
+
+/// A state of rest from which one step led to several.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Fork {
+    /// The state before the step.
+    pub before: State,
+    /// The commonest of those after it; of equally common ones that of the lowest sample.
+    pub commonest: State,
 }
 
 /// One settled state of a window.

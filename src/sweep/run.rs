@@ -15,8 +15,8 @@ const CHUNK: u64 = 128;
 
 /// Runs samples `from .. to` of a scenario on this many threads (0: all cores) and tallies them.
 ///
-/// The result depends on nothing but scenario and samples. If the control cancels, it holds the chunks that were
-/// complete by then.
+/// The result depends on nothing but scenario and samples. If the control cancels, it holds the samples from the first on
+/// up to the one that `samples` of the tally tells: whole boards, and none behind a gap.
 pub fn run_samples(
     scenario: &Scenario,
     program: &Program,
@@ -44,8 +44,12 @@ pub fn run_samples(
         // a sample is all or nothing: the caller's control stops between chunks
         let whole_sample = Control::default();
         loop {
+            // a chunk that was taken is run, so that what is done has no gap
+            if control.cancelled() {
+                break;
+            }
             let from = next.fetch_add(chunk, Ordering::Relaxed);
-            if from >= samples.end || control.cancelled() {
+            if from >= samples.end {
                 break;
             }
             let to = (from + chunk).min(samples.end);

@@ -27,6 +27,7 @@ pub fn mix(hash: u64, word: u64) -> u64 {
 
 /// How often a key was seen, and in which sample first.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Count {
     /// Times.
     pub count: u64,
@@ -36,8 +37,10 @@ pub struct Count {
 
 /// Keys with their counts.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(bound(serialize = "K: Serialize", deserialize = "K: Deserialize<'de>"), deny_unknown_fields)]
 pub struct Seen<K: Ord> {
     level: u32,
+    #[serde(with = "super::pairs")]
     kept: BTreeMap<K, Count>,
     all: u64,
 }
@@ -114,6 +117,16 @@ impl<K: Key> Seen<K> {
     /// Were there more keys than are kept?
     pub fn is_truncated(&self) -> bool {
         self.level > 0
+    }
+
+    /// Could samples below `planned`, `samples` of them, have been seen like this, each at most once? `known` tells whether
+    /// a key is one at all.
+    pub(super) fn fits(&self, samples: u64, planned: u64, known: impl Fn(&K) -> bool) -> bool {
+        let counts = self.kept.values().try_fold(0u64, |sum, seen| sum.checked_add(seen.count));
+        let all = if self.level == 0 { counts == Some(self.all) } else { counts.is_some_and(|sum| sum <= self.all) };
+        let each =
+            |(key, seen): (&K, &Count)| keeps(self.level, key) && seen.count > 0 && seen.first < planned && known(key);
+        all && self.level <= 64 && self.all <= samples && self.kept.len() <= KEPT && self.kept.iter().all(each)
     }
 
     /// Sum of all counts, kept or not.

@@ -21,15 +21,21 @@ pub(super) const RESOLUTION: f64 = 1.0 / CLASSES as f64;
 
 /// The spread of some times.
 #[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Spread {
     n: u64,
     min: Option<u64>,
     max: Option<u64>,
     /// Value to count; `None` once there are too many different ones.
+    #[serde(with = "super::pairs::optional")]
     exact: Option<BTreeMap<u64, u64>>,
     /// Octave to counts of its classes.
+    #[serde(with = "super::pairs")]
     pages: BTreeMap<u8, Vec<u64>>,
 }
+
+/// Times stay below this: a run ends below 2^63 fs.
+const LONGEST: u64 = 1 << 63;
 
 fn class_of(fs: u64) -> (u8, usize) {
     let octave = (u64::BITS - fs.leading_zeros()).saturating_sub(CLASS_BITS + 1);
@@ -102,6 +108,34 @@ impl Spread {
         self.n += other.n;
         self.min = [self.min, other.min].into_iter().flatten().min();
         self.max = self.max.max(other.max);
+    }
+
+    /// Could these be the times of this many windows at most?
+    pub(super) fn fits(&self, samples: u64) -> bool {
+        if !self.has_sound_pages() {
+            return false;
+        }
+        let counts = self.classes();
+        let sum = counts.iter().try_fold(0u64, |sum, (_, _, count)| sum.checked_add(*count));
+        let ends = match (counts.first(), counts.last(), self.min, self.max) {
+            (None, None, None, None) => true,
+            (Some(first), Some(last), Some(min), Some(max)) => {
+                let within = |class: &(u64, u64, u64), fs: u64| fs >= class.0 && fs - class.0 < class.1.max(1);
+                max < LONGEST && within(first, min) && within(last, max) && min <= max
+            }
+            _ => false,
+        };
+        let form = match &self.exact {
+            Some(exact) => exact.len() <= DISTINCT && exact.values().all(|it| *it > 0) && self.pages.is_empty(),
+            None => true,
+        };
+        form && ends && sum == Some(self.n) && self.n <= samples
+    }
+
+    /// Are pages such as this program makes?
+    fn has_sound_pages(&self) -> bool {
+        let last = class_of(LONGEST - 1).0;
+        self.pages.iter().all(|(octave, page)| *octave <= last && page.len() == CLASSES)
     }
 
     /// Number of times.

@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
+use super::lowest::Lowest;
 use super::seen::{Count, Key, Seen, mix};
 use super::spread::Spread;
 use crate::engine::{End, Hit};
@@ -13,6 +14,7 @@ use crate::scenario::Scenario;
 
 /// From which state to which: the state before a step, and the settled one.
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Passage {
     /// Before.
     pub before: Option<State>,
@@ -46,6 +48,7 @@ impl Key for State {
 
 /// An order of loop nets in one passage. Of each passage all orders are kept or none.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Order {
     /// [`Passage::mark`].
     pub passage: u64,
@@ -61,6 +64,7 @@ impl Key for Order {
 
 /// What happened in the windows of one moment.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct WindowTally {
     /// Samples in which the moment came.
     pub reached: u64,
@@ -114,6 +118,7 @@ impl PartialEq for Streak {
 
 /// Answers to one question.
 #[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct RowTally {
     /// Samples judged.
     pub judged: u64,
@@ -127,6 +132,7 @@ pub struct RowTally {
 
 /// How often something was found.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct FactTally {
     /// Does it break a rule?
     pub breaks_rule: bool,
@@ -134,6 +140,8 @@ pub struct FactTally {
     pub count: u64,
     /// The lowest of them.
     pub first: u64,
+    /// The lowest of them, where it breaks a rule: those that are compared with samples that do not show it.
+    pub lowest: Lowest,
     /// The worst measure, and the lowest sample with it.
     pub worst: Option<(Measure, u64)>,
     /// Boards that ever show it; only complete boards, and only with several tries a board.
@@ -146,13 +154,16 @@ pub struct FactTally {
 
 /// A board of which not all tries are in yet.
 #[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
-struct PartBoard {
+#[serde(deny_unknown_fields)]
+pub(super) struct PartBoard {
     samples: u64,
+    #[serde(with = "super::pairs")]
     facts: BTreeMap<Subject, u64>,
 }
 
 /// The tally of some samples of a sweep.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub struct Tally {
     /// Samples in it.
     pub samples: u64,
@@ -163,12 +174,14 @@ pub struct Tally {
     /// One a question.
     pub rows: Vec<RowTally>,
     /// What was found.
+    #[serde(with = "super::pairs")]
     pub facts: BTreeMap<Subject, FactTally>,
     /// Complete boards in it, with several tries a board.
     pub boards: u64,
-    planned: u64,
-    tries: u64,
-    part_boards: BTreeMap<u64, PartBoard>,
+    pub(super) planned: u64,
+    pub(super) tries: u64,
+    #[serde(with = "super::pairs")]
+    pub(super) part_boards: BTreeMap<u64, PartBoard>,
     #[serde(skip)]
     sample: u64,
     #[serde(skip)]
@@ -281,6 +294,7 @@ impl FactTally {
             breaks_rule,
             count: 0,
             first: u64::MAX,
+            lowest: Lowest::default(),
             worst: None,
             boards_failing: 0,
             worst_board,
@@ -306,6 +320,7 @@ impl FactTally {
     fn merge(&mut self, other: &FactTally) {
         self.count += other.count;
         self.first = self.first.min(other.first);
+        self.lowest.merge(&other.lowest);
         merge_worst(&mut self.worst, other.worst, |new, old| new > old);
         self.boards_failing += other.boards_failing;
         self.on_boards = (self.on_boards.0 + other.on_boards.0, self.on_boards.1 + other.on_boards.1);
@@ -425,6 +440,9 @@ impl Sink for Tally {
         let tally = self.facts.entry(fact.subject).or_insert_with(|| FactTally::new(fact.breaks_rule));
         tally.count += 1;
         tally.first = tally.first.min(self.sample);
+        if fact.breaks_rule {
+            tally.lowest.add(self.sample);
+        }
         merge_worst(&mut tally.worst, fact.measure.map(|measure| (measure, self.sample)), |new, old| new > old);
         if let Some(board) = self.board {
             *self.part_boards.entry(board).or_default().facts.entry(fact.subject).or_insert(0) += 1;

@@ -1,16 +1,18 @@
 //! Results of a sweep and a review, built by hand: every kind of value and gap occurs somewhere.
 
+use std::collections::BTreeMap;
+
 use stillgate::circuit::NetId;
-use stillgate::findings::{Asked, Kind, Reason, RuleKey, Shape, Subject};
-use stillgate::instance::Which;
+use stillgate::findings::{Asked, Kind, Leg, Path, RacePair, Reason, RuleKey, Shape, Subject};
+use stillgate::instance::{Instance, Quantities, Quantity, Which};
 use stillgate::logic::{Bits, State, Value};
-use stillgate::review::{Call, Review, StatesReport, Verdict};
+use stillgate::review::{Away, Call, Cut, Kept, Needs, Pull, Pulls, Review, StatesReport, Untold, Verdict, Why};
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{
-    AtMost, Boards, Finding, Outcome, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass, WindowReport,
-    Worst,
+    AtMost, Boards, Finding, Outcome, Ranges, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass,
+    WindowReport, Worst,
 };
-use stillgate::time::Span;
+use stillgate::time::{Span, Time};
 
 use super::cases::{self, ns};
 use super::flows;
@@ -65,6 +67,7 @@ pub fn window(moment: u32, outcomes: Vec<Outcome>, settling: Option<Settling>) -
         cut: 0,
         began_before_rest: 0,
         settling,
+        forks: Vec::new(),
     }
 }
 
@@ -162,6 +165,9 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
         at_most: None,
         unseen: Some(UnseenMass { moment: 3, once: 120, of: 10_000, estimate: 0.012, upper: 0.112 }),
         unseen_untold: 0,
+        failing: BTreeMap::new(),
+        missing: Ranges::default(),
+        stopped: None,
         conditions: Vec::new(),
         ties: TiesSought { done: true, ..TiesSought::default() },
     }
@@ -194,6 +200,31 @@ pub fn states(scenario: &Scenario) -> StatesReport {
     }
 }
 
+/// The first finding with a pair of paths that begin apart, the second with none, the others not looked into.
+fn why(scenario: &Scenario, findings: usize) -> Vec<Option<Why>> {
+    let net = |name: &str| scenario.circuit.net(name).unwrap();
+    let fs = |ps: u64| Span::from_fs(ps * 1000);
+    let path = |from: &str, start: u64, legs: &[(&str, Value, u64, bool)]| {
+        let at = Time::ZERO + fs(start);
+        let mut end = at;
+        let legs = legs.iter().map(|(name, new, delay, came)| {
+            end = end + fs(*delay);
+            Leg { net: net(name), wire: None, new: *new, delay: fs(*delay), at: end, came: *came }
+        });
+        let legs = legs.collect();
+        Path { from: Some((net(from), Value::One)), moment: Some(2), at, legs, left_out: 0 }
+    };
+    let (one, zero) = (Value::One, Value::Zero);
+    let pair = RacePair {
+        first: path("call_upper", 230_000, &[("hold_upper", zero, 9_800, true), ("open_upper", one, 11_645, true)]),
+        second: Some(path("call_lower", 231_500, &[("hold_lower", zero, 10_020, false)])),
+        meet: Some(net("hold_lower")),
+    };
+    let mut why = causes(scenario, findings);
+    why[0].get_or_insert_default().race = Some(pair);
+    why
+}
+
 /// What a review of [`cases::lock`] could say.
 pub fn review(scenario: &Scenario) -> Review {
     let asked = Asked::of(scenario);
@@ -206,7 +237,8 @@ pub fn review(scenario: &Scenario) -> Review {
             (1, cases::run(scenario, Which::Sample(17))),
             (3, cases::run(scenario, Which::Sample(8123))),
         ],
-        why: vec![None; sweep.findings.len()],
+        why: why(scenario, sweep.findings.len()),
+        search: None,
         sweep,
         asked,
         verdict: Verdict {
@@ -220,6 +252,43 @@ pub fn review(scenario: &Scenario) -> Review {
     }
 }
 
+/// Why the first findings of [`review`] could happen: one needs two delays, one is cut short, of the others nothing is told.
+fn causes(scenario: &Scenario, findings: usize) -> Vec<Option<Why>> {
+    let quantities: Vec<Quantity> = Quantities::of(scenario).iter().copied().collect();
+    let away = |number: usize, value: Span| Away {
+        quantity: quantities[number],
+        typical: quantities[number].range.typ,
+        value,
+    };
+    let least = away(0, quantities[0].range.min);
+    let far = away(1, Span::from_fs(quantities[1].range.max.fs() - 1_234));
+    let needs = Needs {
+        away: vec![far, least],
+        minimal: true,
+        kept: Kept::default(),
+        case: Box::new(Instance::of(scenario, &Which::Typ)),
+        runs: 123,
+        cut: None,
+    };
+    let pull = |number: usize, strength| Pull { quantity: quantities[number], strength, failing: 9, passing: 1_024 };
+    let told = vec![pull(1, 0.871_234_5), pull(2, -0.25)];
+    let both = Why {
+        race: None,
+        needs: Some(needs.clone()),
+        pull: Some(Pulls { told, more: 3, samples: (9, 1_024), untold: None }),
+    };
+    let kept = Kept { start: true, bounces: false, firings: false, exact: false };
+    let away = vec![least];
+    let cut = Why {
+        race: None,
+        needs: Some(Needs { away, minimal: false, kept, cut: Some(Cut::Runs(2_000)), runs: 2_000, ..needs }),
+        pull: Some(Pulls { untold: Some(Untold::FewFail), ..Pulls::default() }),
+    };
+    let mut all = vec![None; findings];
+    (all[0], all[1]) = (Some(both), Some(cut));
+    all
+}
+
 /// A sweep that was broken off before its first draw.
 pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
     SweepReport {
@@ -231,6 +300,9 @@ pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
         at_most: None,
         unseen: None,
         unseen_untold: 0,
+        failing: BTreeMap::new(),
+        missing: Ranges::default(),
+        stopped: None,
         conditions: Vec::new(),
         ties: TiesSought::default(),
     }

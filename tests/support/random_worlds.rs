@@ -1,13 +1,16 @@
 //! Random small circuits with random stimulus, by number: the same number gives the same case on every machine.
 
+use std::collections::BTreeMap;
+use std::sync::Arc;
+
 use rand::seq::IndexedRandom;
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
-use stillgate::circuit::{Expr, Function, NetId};
-use stillgate::delay::{DelayRange, Filter};
-use stillgate::instance::{Instance, Which};
+use stillgate::circuit::{Expr, Function, GateId, NetId};
+use stillgate::delay::{Billionths, DelayRange, Filter, Group, Marginal, Together};
+use stillgate::instance::{Firings, Instance, Which};
 use stillgate::logic::Bits;
-use stillgate::scenario::{Begin, Bounce, Clock, Mark, Place, Scenario};
+use stillgate::scenario::{Begin, Bounce, Clock, Mark, Place, Scenario, Vary};
 
 use super::world::{Gate, World, exact, fs, stable_states};
 
@@ -27,6 +30,8 @@ pub struct Kind {
     pub hazards: bool,
     /// How many of the steps bounce, and how many of the others wait for a pattern.
     pub hands: f64,
+    /// Delays with a range, and firings of a gate that differ: drawn, or some of them given.
+    pub anew: bool,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -287,7 +292,56 @@ pub const PLAIN: Kind = Kind {
     rings: false,
     hazards: false,
     hands: 0.02,
+    anew: false,
 };
+
+/// Longer greatest delays, groups, and a draw for every firing; least delays stay, so every filter still fits.
+fn widen(scenario: &mut Scenario, rng: &mut ChaCha8Rng, lengths: Lengths) {
+    scenario.plan.vary = Vary::PerEvent;
+    scenario.plan.draw = *Marginal::ALL.choose(rng).unwrap();
+    let delays = Arc::make_mut(&mut scenario.delays);
+    let mut groups: Vec<Group> = [
+        Together::Tracking(Billionths::nearest(0.7)),
+        Together::Scale {
+            least: Billionths::nearest(0.5),
+            greatest: Billionths::nearest(2.0),
+            mismatch: Billionths::nearest(0.4),
+        },
+    ]
+    .map(|how| Group { gates: Vec::new(), how })
+    .into();
+    for (gate, edges) in delays.gate.iter_mut().enumerate() {
+        for edge in edges.iter_mut() {
+            if rng.random_bool(0.2) {
+                continue;
+            }
+            let typ = edge.min.fs() + lengths.draw(rng) - 1;
+            *edge = DelayRange { min: edge.min, typ: fs(typ), max: fs(typ + lengths.draw(rng) - 1) };
+        }
+        delays.gate_one_draw[gate] = edges[0] == edges[1];
+        if let Some(group) = groups.get_mut(rng.random_range(0..6)) {
+            group.gates.push(GateId(gate as u32));
+        }
+    }
+    for edges in &mut delays.wire {
+        *edges = edges.map(|edge| DelayRange::between(edge.min, fs(edge.min.fs() + lengths.draw(rng) - 1)));
+    }
+    groups.retain(|group| !group.gates.is_empty());
+    delays.groups = groups;
+}
+
+/// A few firings with delays of their own, not shorter than the least of their gate.
+fn given(scenario: &Scenario, rng: &mut ChaCha8Rng, lengths: Lengths) -> Firings {
+    let mut given = BTreeMap::new();
+    for (gate, edges) in scenario.delays.gate.iter().enumerate() {
+        for _ in 0..rng.random_range(0..4) {
+            let most = *[6, 60].choose(rng).unwrap();
+            let firing = rng.random_range(0..most);
+            given.insert((GateId(gate as u32), firing), edges.map(|edge| fs(edge.min.fs() + lengths.draw(rng) - 1)));
+        }
+    }
+    Firings::Given(given)
+}
 
 /// One random case.
 pub struct Case {
@@ -306,12 +360,21 @@ pub fn cases(count: u64, kind: Kind) -> impl Iterator<Item = Case> {
         let mut rng = ChaCha8Rng::seed_from_u64(1);
         rng.set_stream(number);
         let world = world(&mut rng, kind);
-        let scenario = world.scenario();
+        let mut scenario = world.scenario();
+        if kind.anew {
+            widen(&mut scenario, &mut rng, kind.delays);
+        }
         let rest = match kind.begin {
             Start::Rest => stable_states(&scenario.circuit, &scenario.stimulus.initial).choose(&mut rng)?.clone(),
             _ => Bits::zeros(scenario.circuit.net_count()),
         };
-        let instance = Instance::of(&scenario, &Which::Sample(rng.random_range(0..1000)));
+        let mut instance = Instance::of(&scenario, &Which::Sample(rng.random_range(0..1000)));
+        if kind.anew && rng.random_bool(0.3) {
+            instance.firings = Some(given(&scenario, &mut rng, kind.delays));
+        }
+        if let Some(Firings::Drawn(drawn)) = &mut instance.firings {
+            drawn.gates.iter_mut().for_each(|gate| gate.moved = [0, 1].map(|_| rng.random_range(0..=1)));
+        }
         Some(Case { name: format!("{kind:?} case {number}"), world, scenario, rest, instance })
     })
 }

@@ -4,9 +4,9 @@
 use std::collections::{BTreeMap, BTreeSet};
 
 use stillgate::circuit::{GateId, NetId};
-use stillgate::delay::Filter;
+use stillgate::delay::{Filter, Marginal};
 use stillgate::engine::{End, Hit};
-use stillgate::instance::Instance;
+use stillgate::instance::{Firings, Instance};
 use stillgate::logic::{Bits, Value};
 use stillgate::scenario::{Begin, MomentKind, Place, Scenario};
 use stillgate::time::{Span, Time};
@@ -21,6 +21,19 @@ pub struct Event {
     pub node: usize,
     pub value: Value,
     pub since: u64,
+    /// The batch that scheduled it.
+    pub batch: usize,
+}
+
+/// What led to what, by batches: 0 is the first, at power-up that in which every gate is evaluated.
+#[derive(Debug, Default)]
+pub struct Links {
+    /// For each batch the nets that changed and the wires at whose ends something arrived.
+    pub heard: Vec<(Vec<NetId>, Vec<usize>)>,
+    /// Events that came, in the order of batches: the event, and the batch in which it came.
+    pub came: Vec<(Event, usize)>,
+    /// Events that were cancelled, and the batch that did it.
+    pub lost: Vec<(Event, usize)>,
 }
 
 struct Open {
@@ -42,6 +55,8 @@ struct Slow<'a> {
     /// For each gate the last change of its output that was computed, also if it vanished; `None`: none, or endlessly
     /// far back.
     computed: Vec<Option<i128>>,
+    /// How many events each gate has scheduled.
+    scheduled: Vec<u64>,
     /// Input changes of steps with skew or bounce that are still to come, in the order in which they were placed.
     coming: Vec<(u64, NetId, bool)>,
     /// Clock edges still to come.
@@ -56,10 +71,16 @@ struct Slow<'a> {
     blocks: Vec<Block>,
     window: Option<Open>,
     record: Record,
+    links: Links,
 }
 
 /// Runs one case. `rest` holds the values of all nets where the scenario begins at rest.
 pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Record {
+    run_with_links(scenario, rest, instance).0
+}
+
+/// As [`run`], with what led to what.
+pub fn run_with_links(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> (Record, Links) {
     let circuit = &scenario.circuit;
     let nets: Vec<Value> = circuit
         .nets()
@@ -89,6 +110,7 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
         ends,
         pending: BTreeSet::new(),
         computed: vec![None; circuit.gate_count()],
+        scheduled: vec![0; circuit.gate_count()],
         coming: Vec::new(),
         edges,
         next_step: 0,
@@ -98,6 +120,7 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
         blocks,
         window: None,
         record,
+        links: Links::default(),
     };
     if !matches!(scenario.begin, Begin::AtRest { .. }) {
         let opening = RecordedOpening { moments: vec![0], state: slow.nets.clone(), ..RecordedOpening::default() };
@@ -105,10 +128,11 @@ pub fn run(scenario: &Scenario, rest: Option<&Bits>, instance: &Instance) -> Rec
         for gate in circuit.gates() {
             slow.evaluate(gate);
         }
+        slow.links.heard.push((Vec::new(), Vec::new()));
     }
     slow.look_for_pattern();
     while slow.batch() {}
-    slow.record
+    (slow.record, slow.links)
 }
 
 /// Edge `edge` of a clock: first, first + high (or low), first + period, …, moved by its jitter, not before 0.
@@ -281,6 +305,7 @@ impl Slow<'_> {
         let gates = self.scenario.circuit.gate_count();
         while self.pending.first().is_some_and(|event| event.at == at) {
             let event = self.pending.pop_first().expect("just seen");
+            self.links.came.push((event, self.links.heard.len()));
             if event.node < gates {
                 self.nets[self.scenario.circuit.net_of(GateId(event.node as u32)).index()] = event.value;
             } else {
@@ -393,10 +418,12 @@ impl Slow<'_> {
             }
         }
 
+        self.links.heard.push((changed.clone(), arrived.clone()));
         let mut blocks = std::mem::take(&mut self.blocks);
         for block in &mut blocks {
             let age = |node: usize| self.age(node);
-            block.after_batch(at, &changed, &arrived, &self.nets, &self.ends, &self.pending, age);
+            let own = |node: usize| self.own(node);
+            block.after_batch(at, &changed, &arrived, &self.nets, &self.ends, &self.pending, age, own);
         }
         self.blocks = blocks;
     }
@@ -425,7 +452,15 @@ impl Slow<'_> {
     fn evaluate(&mut self, gate: GateId) {
         let f = self.function(gate);
         let v = self.nets[self.scenario.circuit.net_of(gate).index()];
-        let (node, delay) = (gate.index(), self.instance.delays.gate[gate.index()]);
+        let node = gate.index();
+        let asks = match self.scenario.delays.filter[node] {
+            // where the function is the output's value, or is pending already, nothing is scheduled
+            Filter::Inertial => f != v && !self.pending.iter().any(|event| event.node == node && event.value == f),
+            // every change of the function
+            _ => self.pending.iter().rfind(|event| event.node == node).map_or(v, |event| event.value) != f,
+        };
+        let delay = self.delay(node);
+        self.scheduled[node] += u64::from(asks);
         match self.scenario.delays.filter[gate.index()] {
             Filter::Inertial => {
                 let pending = self.pending.iter().find(|event| event.node == node).copied();
@@ -436,7 +471,13 @@ impl Slow<'_> {
                     self.cancel(event);
                 }
                 if f != v {
-                    self.pending.insert(Event { at: self.now + span(delay, f), node, value: f, since: self.now });
+                    self.pending.insert(Event {
+                        at: self.now + span(delay, f),
+                        node,
+                        value: f,
+                        since: self.now,
+                        batch: self.links.heard.len(),
+                    });
                 }
             }
             Filter::Transport => self.schedule_all(node, v, f, delay),
@@ -482,7 +523,13 @@ impl Slow<'_> {
                     _ => {
                         let earliest = newest.map_or(self.now, |event| event.at) + 1;
                         let at = at.map_or(earliest, |at| at.max(i128::from(earliest)) as u64);
-                        self.pending.insert(Event { at, node, value: f, since: self.now });
+                        self.pending.insert(Event {
+                            at,
+                            node,
+                            value: f,
+                            since: self.now,
+                            batch: self.links.heard.len(),
+                        });
                         Some(i128::from(at))
                     }
                 };
@@ -491,10 +538,53 @@ impl Slow<'_> {
         }
     }
 
+    /// `[fall, rise]` of the next event that a gate schedules.
+    fn delay(&self, gate: usize) -> [Span; 2] {
+        let (plain, number) = (self.instance.delays.gate[gate], self.scheduled[gate]);
+        match &self.instance.firings {
+            None => plain,
+            Some(Firings::Given(given)) => {
+                given.iter().find(|(which, _)| **which == (GateId(gate as u32), number)).map_or(plain, |it| *it.1)
+            }
+            Some(Firings::Drawn(drawn)) => {
+                let gate = &drawn.gates[gate];
+                [0, 1].map(|edge| {
+                    let random = split_mix(gate.key, 2 * number + if gate.one_draw { 0 } else { edge });
+                    let range = gate.ranges[edge as usize];
+                    let span = match gate.group {
+                        Some((how, common)) => how.draw(drawn.draw, range, random, common),
+                        None if drawn.draw == Marginal::Uniform => {
+                            let (min, width) = (range.min.fs(), range.max.fs() - range.min.fs() + 1);
+                            Span::from_fs(min + ((u128::from(random) * u128::from(width)) >> 64) as u64)
+                        }
+                        None => drawn.draw.quantile(range, random),
+                    };
+                    Span::from_fs((span.fs() as i64 + gate.moved[edge as usize]).clamp(1, (1 << 62) - 1) as u64)
+                })
+            }
+        }
+    }
+
+    /// How many events a gate has scheduled that are not followed by equal delays alone.
+    fn own(&self, gate: usize) -> u64 {
+        let Some(scheduled) = self.scheduled.get(gate) else { return 0 };
+        match &self.instance.firings {
+            None => 0,
+            Some(Firings::Drawn(drawn)) => {
+                let differ = drawn.gates[gate].ranges.iter().any(|range| range.min < range.max);
+                *scheduled * u64::from(differ)
+            }
+            Some(Firings::Given(given)) => {
+                let numbers = given.keys().filter(|which| which.0.index() == gate).map(|which| which.1);
+                numbers.max().map_or(0, |last| (*scheduled).min(last + 1))
+            }
+        }
+    }
+
     /// How long ago an involution gate's last computed change was, while that still changes a delay.
     fn age(&self, node: usize) -> Option<i128> {
         let Some(Filter::Involution(tau)) = self.scenario.delays.filter.get(node) else { return None };
-        let (age, delay) = (i128::from(self.now) - self.computed[node]?, self.instance.delays.gate[node]);
+        let (age, delay) = (i128::from(self.now) - self.computed[node]?, self.delay(node));
         let full = |rise| involution(*tau, delay, rise, Some(age)) == involution(*tau, delay, rise, None);
         (!full(false) || !full(true)).then_some(age)
     }
@@ -510,12 +600,13 @@ impl Slow<'_> {
             self.cancel(event);
         }
         if last(&self.pending).map_or(present, |event| event.value) != new {
-            self.pending.insert(Event { at, node, value: new, since: self.now });
+            self.pending.insert(Event { at, node, value: new, since: self.now, batch: self.links.heard.len() });
         }
     }
 
     fn cancel(&mut self, event: Event) {
         self.pending.remove(&event);
+        self.links.lost.push((event, self.links.heard.len()));
         let age = self.now - event.since;
         if event.node < self.scenario.circuit.gate_count() && age > 0 {
             let window = self.record.windows.len();
@@ -528,6 +619,15 @@ impl Slow<'_> {
             });
         }
     }
+}
+
+/// Number `index`, from 0, of the generator SplitMix64 from a seed: its state has moved on `index + 1` times.
+fn split_mix(seed: u64, index: u64) -> u64 {
+    let moved = u128::from(index + 1) * 0x9E37_79B9_7F4A_7C15;
+    let state = ((u128::from(seed) + moved) & u128::from(u64::MAX)) as u64;
+    let z = (state ^ (state >> 30)).wrapping_mul(0xBF58_476D_1CE4_E5B9);
+    let z = (z ^ (z >> 27)).wrapping_mul(0x94D0_49BB_1331_11EB);
+    z ^ (z >> 31)
 }
 
 /// The formulas of the involution model, rounded; `None`: minus infinity.

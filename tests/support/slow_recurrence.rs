@@ -33,6 +33,7 @@ struct Note {
     values: Vec<Value>,
     remaining: BTreeSet<(usize, u64, Value)>,
     ages: Vec<Option<i128>>,
+    own: Vec<u64>,
     passes: Vec<u64>,
     moved: Vec<NetId>,
 }
@@ -60,7 +61,8 @@ impl Block {
         self.nodes.contains(&node)
     }
 
-    /// `age`: of gates with a memory of their last change, while it matters.
+    /// `age`: of gates with a memory of their last change, while it matters. `own`: events with delays of their own that a
+    /// gate has scheduled.
     #[allow(clippy::too_many_arguments)]
     pub fn after_batch(
         &mut self,
@@ -71,6 +73,7 @@ impl Block {
         ends: &[Value],
         pending: &BTreeSet<Event>,
         age: impl Fn(usize) -> Option<i128>,
+        own: impl Fn(usize) -> u64,
     ) {
         if self.inputs.iter().any(|input| changed.contains(input)) {
             (self.count, self.next, self.note, self.recurred) = (0, 64, None, None);
@@ -87,13 +90,14 @@ impl Block {
             pending.iter().filter(|e| self.nodes.contains(&e.node)).map(|e| (e.node, e.at - at, e.value)).collect()
         };
         let ages = || -> Vec<Option<i128>> { self.nodes.iter().map(|node| age(*node)).collect() };
+        let own = || -> Vec<u64> { self.nodes.iter().map(|node| own(*node)).collect() };
         if let Some(note) = &mut self.note {
             note.moved.extend(self.nets.iter().filter(|net| changed.contains(net)));
         }
         if let Some(note) = &mut self.note
             && note.values == values()
         {
-            if note.remaining == remaining() && note.ages == ages() {
+            if note.remaining == remaining() && note.ages == ages() && note.own == own() {
                 let often = |net: &NetId| (*net, note.moved.iter().filter(|other| *other == net).count() as u32);
                 let moving = self.nets.iter().map(often).filter(|(_, count)| *count > 0).collect();
                 self.recurred = Some(Recurred { at, period: at - note.at, range: None, moving });
@@ -118,6 +122,7 @@ impl Block {
                 values: values(),
                 remaining: remaining(),
                 ages: ages(),
+                own: own(),
                 passes: Vec::new(),
                 moved: Vec::new(),
             });

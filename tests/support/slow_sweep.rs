@@ -52,6 +52,26 @@ impl Whole<'_> {
         }
         self.rules(report, of);
         self.findings(report, of);
+        self.failing(report, of);
+    }
+
+    /// The first samples that break each rule, and the commonest way on from every state that has several.
+    fn failing(&self, report: &SweepReport, of: &str) {
+        let breakers = self.facts().into_iter().filter(|found| found.breaks_rule);
+        let first = |found: &Found| found.samples.iter().map(|it| it.0).take(256).collect::<Vec<u64>>();
+        let expected: BTreeMap<Subject, Vec<u64>> = breakers.map(|found| (found.subject, first(&found))).collect();
+        assert_eq!(report.failing, expected, "{of}");
+        for window in &report.windows {
+            let mut expected = Vec::new();
+            for (before, group) in self.rest_to_rest(window.moment) {
+                let strays = not_the_commonest(&group, |window| window.state.clone());
+                let most = group.iter().find(|it| !strays.contains(&it.0)).expect("the commonest is not empty");
+                let several = group.iter().any(|it| it.1.state != most.1.state);
+                expected.extend(several.then(|| (before, most.1.state.clone())));
+            }
+            let said: Vec<_> = window.forks.iter().map(|it| (it.before.clone(), it.commonest.clone())).collect();
+            assert_eq!(said, expected, "{of}");
+        }
     }
 
     /// Samples in which a moment came.

@@ -8,14 +8,19 @@
 mod check;
 mod flow;
 mod limit;
+mod part;
 mod parts;
+mod races;
 mod review;
 mod run;
+mod search;
 mod states;
 mod sweep;
+mod why;
 
 pub use check::check;
 pub use limit::{limit, limit_map};
+pub use part::part;
 pub use review::review;
 pub use run::run;
 pub use states::states;

@@ -2,9 +2,13 @@
 
 use serde::Serialize;
 
+use super::parts::Lines;
 use super::run::Run;
+use super::search::{Question, search};
 use super::states::States;
 use super::sweep::Sweep;
+use crate::instance::Which;
+use crate::output::search::{case_files, file_of};
 use crate::review::Review;
 use crate::scenario::Scenario;
 
@@ -21,12 +25,20 @@ struct Whole<'a> {
     states: States<'a>,
     typical: Option<Run<'a>>,
     sweep: Sweep<'a>,
+    search: Option<Lines<Question<'a>>>,
     proof: Option<()>,
 }
 
 /// The document of `review`. `states`, `typical` and `sweep` have the keys of their own documents, but for `format`.
 pub fn review(scenario: &Scenario, review: &Review) -> String {
     let asked = &review.asked;
+    let files = case_files(review);
+    let mut sweep = Sweep::of(scenario, asked, &review.sweep, None).explained(scenario, review);
+    for (told, finding) in sweep.findings.iter_mut().zip(&review.sweep.findings) {
+        if let Some(Which::Given(_)) = finding.case.as_deref() {
+            told.case = file_of(&files, finding.subject.question).map(String::from);
+        }
+    }
     super::document(&Whole {
         format: super::FORMAT,
         title: &scenario.title,
@@ -38,7 +50,8 @@ pub fn review(scenario: &Scenario, review: &Review) -> String {
         not_analysed: &scenario.not_analysed,
         states: States::of(scenario, &review.states, None),
         typical: review.typical.as_ref().map(|run| Run::of(scenario, asked, run, None)),
-        sweep: Sweep::of(scenario, asked, &review.sweep, None),
+        sweep,
+        search: search(scenario, review, &files),
         proof: None,
     })
 }

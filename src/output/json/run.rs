@@ -3,8 +3,10 @@
 use serde::Serialize;
 
 use super::parts::{Departed, Exact, Level, Lines, Measured, Object, OneLine, state};
+use super::races::Race;
 use crate::engine::End;
 use crate::findings::Asked;
+use crate::instance::Firings;
 use crate::output::words;
 use crate::review::RunReport;
 use crate::scenario::Scenario;
@@ -15,6 +17,7 @@ pub(super) struct Run<'a> {
     #[serde(skip_serializing_if = "Option::is_none")]
     format: Option<u32>,
     delays: String,
+    firings: Option<&'static str>,
     events: u64,
     waves: Object<&'a str, OneLine<Vec<(Exact, Level)>>>,
     windows: Vec<Window<'a>>,
@@ -61,6 +64,7 @@ struct Found<'a> {
     place: Option<(Exact, Exact)>,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
+    race: Option<Race<'a>>,
 }
 
 impl<'a> Run<'a> {
@@ -108,6 +112,7 @@ impl<'a> Run<'a> {
                 worst: words::worst_of(fact).map(|worst| Measured::of(worst, unit)),
                 place: fact.place.map(|(from, to)| (Exact::time(from, unit), Exact::time(to, unit))),
                 reference: run.against(fact).map(|it| Departed::of(scenario, it)),
+                race: run.race(scenario, asked, fact).map(|pair| Race::of(scenario, &pair)),
             }
         };
         let unjudged = |(number, reason): &(u32, crate::findings::Reason)| {
@@ -123,6 +128,10 @@ impl<'a> Run<'a> {
         Run {
             format,
             delays: run.which.key(),
+            firings: run.instance.firings.as_ref().map(|firings| match firings {
+                Firings::Drawn(_) => "drawn",
+                Firings::Given(_) => "given",
+            }),
             events: trace.events,
             waves: Object(waves.collect()),
             windows: trace.windows.iter().map(window).collect(),

@@ -2,10 +2,14 @@
 
 use serde::Serialize;
 
-use super::parts::{Departed, Exact, Level, Measured, Object, OneLine, state};
+use super::part::ends;
+use super::parts::{Departed, Exact, Level, Lines, Measured, Object, OneLine, state};
+use super::races::Race;
+use super::why;
 use crate::findings::Asked;
+use crate::output::causes;
 use crate::output::words::{self, six};
-use crate::review::{Verdict, by_condition};
+use crate::review::{Review, Verdict, by_condition};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, Settling, SweepReport, TiesSought, WindowReport};
 
@@ -15,18 +19,25 @@ pub(super) struct Sweep<'a> {
     format: Option<u32>,
     samples: u64,
     samples_asked: u64,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    missing: Option<OneLine<Vec<[u64; 2]>>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    until: Option<OneLine<Until>>,
     seed: u64,
     tries: u64,
     draw: &'static str,
+    vary: &'static str,
     windows: Vec<Window<'a>>,
     rules: Vec<Rule<'a>>,
-    findings: Vec<Found<'a>>,
+    pub(super) findings: Vec<Found<'a>>,
     failures_at_most: Option<OneLine<AtMost>>,
     unseen_mass: Option<OneLine<Unseen<'a>>>,
     unseen_untold: u64,
     ties: OneLine<Ties>,
     #[serde(skip_serializing_if = "Option::is_none")]
     conditions: Option<Vec<Condition<'a>>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    races_not_looked_for: Option<usize>,
 }
 
 #[derive(Serialize)]
@@ -82,7 +93,7 @@ struct Rule<'a> {
 }
 
 #[derive(Serialize)]
-struct Found<'a> {
+pub(super) struct Found<'a> {
     #[serde(skip_serializing_if = "Option::is_none")]
     condition: Option<&'a str>,
     kind: &'static str,
@@ -101,9 +112,18 @@ struct Found<'a> {
     tie: Option<&'static str>,
     sample: Option<u64>,
     worst_sample: Option<u64>,
-    case: Option<String>,
+    pub(super) case: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    needs: Option<why::Needs>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pull: Option<Lines<why::Decisive>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pull_remark: Option<String>,
+    /// Absent where nobody looked for it.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    race: Option<Option<Race<'a>>>,
 }
 
 #[derive(Serialize)]
@@ -113,6 +133,16 @@ struct Boards {
     interval: Option<[f64; 2]>,
     mean_share: f64,
     worst_share: f64,
+}
+
+/// A sweep that was to stop when sure; the intervals allow for all its looks.
+#[derive(Serialize)]
+struct Until {
+    width: f64,
+    widest: Option<f64>,
+    sure: bool,
+    looks: u64,
+    looked: u64,
 }
 
 /// The sweep under one condition.
@@ -173,9 +203,20 @@ impl<'a> Sweep<'a> {
             format,
             samples: report.samples,
             samples_asked: report.plan.samples,
+            missing: (!report.missing.is_empty()).then(|| ends(&report.missing)),
+            until: report.stopped.as_ref().map(|it| {
+                OneLine(Until {
+                    width: it.curve.until.width(),
+                    widest: it.widest.map(six),
+                    sure: it.curve.sure,
+                    looks: it.looks,
+                    looked: it.curve.looked,
+                })
+            }),
             seed: report.plan.seed,
             tries: report.plan.tries,
             draw: report.plan.draw.name(),
+            vary: report.plan.vary.name(),
             windows: report.windows.iter().map(|it| window(scenario, it)).collect(),
             rules: report.rules.iter().map(|it| rule(scenario, it)).collect(),
             findings: report.findings.iter().map(|it| finding(scenario, asked, it)).collect(),
@@ -201,7 +242,22 @@ impl<'a> Sweep<'a> {
             unseen_untold: report.unseen_untold,
             ties: ties(&report.ties),
             conditions: Some(conditions),
+            races_not_looked_for: None,
         }
+    }
+
+    /// With why findings happen, where that was looked into.
+    pub fn explained(mut self, scenario: &'a Scenario, review: &Review) -> Sweep<'a> {
+        let files = causes::case_files(scenario, review);
+        for ((finding, why), file) in self.findings.iter_mut().zip(&review.why).zip(files) {
+            let Some(why) = why else { continue };
+            finding.race = Some(why.race.as_ref().map(|pair| Race::of(scenario, pair)));
+            finding.needs = why::needs(scenario, why, file);
+            finding.pull = why::pull(scenario, why);
+            finding.pull_remark = causes::pull_remark(why);
+        }
+        self.races_not_looked_for = Some(review.why.iter().filter(|why| why.is_none()).count());
+        self
     }
 }
 
@@ -301,6 +357,10 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         worst_sample: finding.worst_sample,
         case: finding.case.as_ref().map(|case| case.key()),
         reference: finding.against.as_ref().map(|it| Departed::of(scenario, it)),
+        needs: None,
+        pull: None,
+        pull_remark: None,
+        race: None,
     }
 }
 

@@ -2,15 +2,25 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use crate::findings::{Against, Asked, Kind, RuleKey, Subject};
-use crate::output::words;
-use crate::review::{departure_words, without_draws};
-use crate::scenario::Scenario;
+use super::search::Searching;
+use super::why::{Causes, Told};
+use crate::findings::{Against, Asked, Kind, RacePair, RuleKey, Subject};
+use crate::instance::Which;
+use crate::output::search::file_of;
+use crate::output::{races, words};
+use crate::review::{Why, departure_words, without_draws};
+use crate::scenario::{Scenario, Vary};
 use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
 /// Most findings told in full.
 const FULL: usize = 5;
-/// Most findings listed that break no rule.
+/// Of how many of them the paths that race are told; the JSON has all.
+const TOLD: usize = 3;
+/// Lines that a path of the first finding takes, at most; those of others are cut to one.
+const LINES: usize = 2;
+/// With more findings that break a rule than this, paths of others are told in the JSON only.
+const FEW: usize = 2;
+/// Most findings listed that break no rule; one less where more than a few break one.
 const LISTED: usize = 3;
 
 /// What a finding is about: `glitch static-0, open_lower, step together`.
@@ -60,7 +70,7 @@ pub(super) fn worst(kind: Kind, worst: Worst) -> String {
 }
 
 /// How often, how surely, how bad.
-fn figures(finding: &Finding) -> String {
+fn figures(scenario: &Scenario, finding: &Finding) -> String {
     let mut text = match finding.case.as_deref().filter(|_| finding.count == 0) {
         Some(case) => format!("in no draw, {}", without_draws(case, finding.tie)),
         None => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
@@ -81,6 +91,9 @@ fn figures(finding: &Finding) -> String {
         text += &format!(", in {mean} of their tries, the worst in {worst}");
         text += match boards.cause() {
             Cause::Parts => ": it lies in their parts",
+            Cause::Moment if scenario.plan.vary == Vary::PerEvent => {
+                ": it lies in the moment of the step or in the firings"
+            }
             Cause::Moment => ": it lies in the moment of the step",
             Cause::Mixed => "",
         };
@@ -147,41 +160,112 @@ impl Group<'_> {
         about(scenario, asked, &self.worst.subject) + &also
     }
 
-    fn figures(&self) -> String {
+    fn figures(&self, scenario: &Scenario) -> String {
         match self.whole.filter(|_| self.more_steps > 0) {
             Some(rule) => {
                 let (broken, judged) = (words::count(rule.broken), words::count(rule.judged));
-                format!("{broken} of {judged} draws over all steps; at this step {}", figures(self.worst))
+                format!("{broken} of {judged} draws over all steps; at this step {}", figures(scenario, self.worst))
             }
-            None => figures(self.worst),
+            None => figures(scenario, self.worst),
         }
     }
 }
 
-/// Findings that break a rule in full, then those that break none.
-pub(super) fn findings(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, asked: &Asked, report: &SweepReport) {
+/// The two paths that race, one line each; a pair that was told before is told by the number of its finding.
+fn race<'a>(
+    paper: &mut Paper,
+    page: &Page<'_>,
+    scenario: &Scenario,
+    why: Option<&'a Why>,
+    told: &mut Vec<Option<&'a RacePair>>,
+) {
+    let pair = why.and_then(|why| why.race.as_ref());
+    let before = told.iter().position(|it| pair.is_some() && *it == pair);
+    told.push(pair);
+    let Some(pair) = pair else { return };
+    if let Some(before) = before {
+        return paper.say(4, Tone::Plain, &format!("The paths that race are those of {}.", before + 1));
+    }
+    let width = if told.len() == 1 { LINES * (page.columns() - 8) } else { page.columns() - 4 };
+    for line in races::lines(scenario, pair, width) {
+        paper.hang(4, 6, Tone::Plain, &line);
+    }
+}
+
+/// Findings that break a rule in full, with their causes if they are known, then those that break none.
+pub(super) fn findings(
+    paper: &mut Paper,
+    page: &Page<'_>,
+    scenario: &Scenario,
+    asked: &Asked,
+    report: &SweepReport,
+    searching: Option<Searching<'_>>,
+    mut causes: Option<&mut Causes<'_>>,
+) {
+    let why = causes.as_ref().map_or(&[][..], |causes| causes.why());
+    let of = |finding: &Finding| {
+        let index = report.findings.iter().position(|it| std::ptr::eq(it, finding))?;
+        why.get(index)?.as_ref()
+    };
     let (broken, listed) = (groups(asked, report, true), groups(asked, report, false));
     if !broken.is_empty() {
         paper.heading("Findings that break a rule, worst first");
+        let mut told = Vec::new();
         for (i, group) in broken.iter().take(FULL).enumerate() {
             let finding = group.worst;
             paper.hang(2, 4, Tone::Bad, &format!("{} {}", i + 1, group.about(scenario, asked)));
-            paper.say(4, Tone::Plain, &group.figures());
+            let cause = causes.as_mut().map(|causes| causes.next(page, scenario, finding));
+            let beside = cause.as_ref().map_or_else(String::new, Told::beside);
+            paper.say(4, Tone::Plain, &(group.figures(scenario) + &beside));
             if let Some(against) = &finding.against {
                 let first = if finding.count > 1 { "the first: " } else { "" };
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
             }
-            if let Some(case) = finding.shown_by() {
-                paper.whole(4, &page.replay(&case, None));
+            if i < TOLD {
+                race(paper, page, scenario, of(finding), &mut told);
+            }
+            match finding.shown_by() {
+                Some(Which::Given(_)) => {
+                    let file = searching.and_then(|it| file_of(it.files, finding.subject.question));
+                    if let Some(file) = file {
+                        paper.whole(4, &page.replay_file(file));
+                    }
+                }
+                Some(case) => paper.whole(4, &page.replay(&case, None)),
+                None => {}
+            }
+            if let Some(cause) = cause {
+                cause.say(paper);
             }
         }
-        super::more(paper, broken.len().saturating_sub(FULL), "findings.csv");
+        let rest =
+            if causes.as_ref().is_some_and(|causes| causes.more()) { "; what each takes: causes.csv" } else { "" };
+        match broken.len().saturating_sub(FULL) {
+            0 if rest.is_empty() => {}
+            0 => paper.say(2, Tone::Plain, "What each of the others takes: causes.csv."),
+            left => paper.say(
+                2,
+                Tone::Plain,
+                &format!("... and {} more (see findings.csv){rest}", words::count(left as u64)),
+            ),
+        }
+        let looked_for = report.findings.iter().zip(why).filter(|(it, why)| it.breaks_rule && why.is_some()).count();
+        if !why.is_empty() && looked_for < report.findings.iter().filter(|it| it.breaks_rule).count() {
+            let broken = report.findings.iter().filter(|it| it.breaks_rule).count() as u64;
+            let (some, all) = (words::count(looked_for as u64), words::many(broken, "finding"));
+            paper.say(2, Tone::Plain, &format!("The paths that race were looked for in {some} of {all}."));
+        }
     }
     if !listed.is_empty() {
         paper.heading("Also seen, breaks no rule");
-        for group in listed.iter().take(LISTED) {
-            paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures()));
+        // where much is broken less is said of the rest
+        let most = if broken.len() > FEW { LISTED - 1 } else { LISTED };
+        for (i, group) in listed.iter().take(most).enumerate() {
+            paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures(scenario)));
+            if i == 0 && broken.len() <= FEW {
+                race(paper, page, scenario, of(group.worst), &mut Vec::new());
+            }
         }
-        super::more(paper, listed.len().saturating_sub(LISTED), "findings.csv");
+        super::more(paper, listed.len().saturating_sub(most), "findings.csv");
     }
 }

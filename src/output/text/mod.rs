@@ -10,19 +10,23 @@ mod flow;
 mod limit;
 mod notes;
 mod paper;
+mod part;
 mod review;
 mod rules;
 mod run;
+mod search;
 mod states;
 mod steps;
 mod sure;
 mod sweep;
 mod ties;
+mod why;
 
 pub use check::check;
 pub(super) use findings::about;
 pub use limit::{limit, limit_map};
 pub use paper::Style;
+pub use part::part;
 pub use review::review;
 pub use run::run;
 pub use states::states;
@@ -41,11 +45,13 @@ pub struct Page<'a> {
     pub scenario: Option<&'a str>,
     /// Options of the draws that the user gave, for the same commands: ` --seed 7`; else empty.
     pub options: &'a str,
+    /// The folder of the files of this review, for the same commands; empty if files are named alone.
+    pub folder: &'a str,
 }
 
 impl Default for Page<'_> {
     fn default() -> Self {
-        Page { style: Style::Plain, width: 100, scenario: None, options: "" }
+        Page { style: Style::Plain, width: 100, scenario: None, options: "", folder: "" }
     }
 }
 
@@ -54,11 +60,25 @@ impl Page<'_> {
         paper::Paper::new(self.style, self.width)
     }
 
+    /// Columns that a text takes.
+    fn columns(&self) -> usize {
+        paper::columns(self.width)
+    }
+
     /// The command that replays a case, under a condition if one is named.
     fn replay(&self, case: &Which, condition: Option<&str>) -> String {
         let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
         let condition = condition.map_or_else(String::new, |name| format!(" --condition {}", in_a_shell(name)));
         format!("stillgate run{scenario}{}{condition} --delays {}", self.options, case.key())
+    }
+}
+
+impl Page<'_> {
+    /// The command that runs the case in a file of this review.
+    fn replay_file(&self, file: &str) -> String {
+        let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
+        let path = std::path::Path::new(self.folder).join(file);
+        format!("stillgate run{scenario} --delays {}", in_a_shell(&path.display().to_string()))
     }
 }
 

@@ -47,6 +47,11 @@ const FIRST_CUT: usize = 18;
 /// And to this once nothing can be dropped.
 const LAST_CUT: usize = 6;
 
+/// The columns that a text takes of this many.
+pub(super) fn columns(width: usize) -> usize {
+    width.clamp(WIDTHS.0, WIDTHS.1)
+}
+
 /// A page that is being written.
 pub(super) struct Paper {
     style: Style,
@@ -56,7 +61,7 @@ pub(super) struct Paper {
 
 impl Paper {
     pub fn new(style: Style, width: usize) -> Paper {
-        Paper { style, width: width.clamp(WIDTHS.0, WIDTHS.1), text: String::new() }
+        Paper { style, width: columns(width), text: String::new() }
     }
 
     pub fn finish(self) -> String {
@@ -165,7 +170,7 @@ impl Paper {
 fn words(text: &str) -> Vec<String> {
     let mut words: Vec<String> = Vec::new();
     for word in text.split_whitespace() {
-        let bare = word.trim_end_matches([',', '.', ';', ')', ':']);
+        let bare = word.trim_end_matches([',', '.', ';', ')', ']', ':']);
         let is_unit = bare == "%" || Unit::ALL.iter().any(|unit| unit.name() == bare);
         match words.last_mut() {
             Some(last) if is_unit && last.ends_with(|letter: char| letter.is_ascii_digit()) => {

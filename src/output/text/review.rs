@@ -2,10 +2,13 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
+use super::search::{Searching, search};
+use super::why::Causes;
 use super::{conditions, findings, flow, notes, rules, steps, sure, ties};
+use crate::output::search::case_files;
 use crate::output::words;
 use crate::review::{Call, Review, Verdict};
-use crate::scenario::Scenario;
+use crate::scenario::{Scenario, Vary};
 use crate::sweep::SweepReport;
 
 /// Most reasons of the verdict.
@@ -15,7 +18,10 @@ const REASONS: usize = 5;
 pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     verdict(&mut paper, &review.verdict);
-    body(&mut paper, page, scenario, &review.asked, &review.sweep);
+    let files = case_files(review);
+    let searching = review.search.as_ref().map(|report| Searching { report, files: &files });
+    let mut causes = Causes::of(scenario, review);
+    body(&mut paper, page, scenario, &review.asked, &review.sweep, searching, Some(&mut causes));
     flow::short(&mut paper, scenario, &review.states.flow);
     notes::notes(&mut paper, scenario);
     paper.finish()
@@ -52,20 +58,33 @@ pub(super) fn body(
     scenario: &Scenario,
     asked: &crate::findings::Asked,
     report: &SweepReport,
+    searching: Option<Searching<'_>>,
+    causes: Option<&mut Causes<'_>>,
 ) {
     paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
-    if report.samples < report.plan.samples {
+    if report.samples < report.plan.samples && !report.stopped.as_ref().is_some_and(|it| it.curve.sure) {
         let (done, wanted) = (words::count(report.samples), words::count(report.plan.samples));
-        paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run."));
+        let missing = match report.missing.is_empty() {
+            true => String::new(),
+            false => format!(" Missing: {}.", report.missing.words()),
+        };
+        paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run.{missing}"));
+    }
+    for condition in report.conditions.iter().filter(|it| it.sweep.missing != report.missing) {
+        let (name, missing) = (&condition.condition.name, condition.sweep.missing.words());
+        paper.say(2, Tone::Unsure, &format!("Under condition {name}: missing {missing}."));
     }
     steps::steps(paper, scenario, report);
-    findings::findings(paper, page, scenario, asked, report);
+    findings::findings(paper, page, scenario, asked, report, searching, causes);
     conditions::conditions(paper, page, scenario, asked, report);
     rules::count(paper, report);
     sure::sure(paper, report);
     ties::ties(paper, report);
     rules::not_judged(paper, scenario, report);
-    rules::margins(paper, scenario, report);
+    rules::margins(paper, scenario, report, searching);
+    if let Some(searching) = searching {
+        search(paper, page, searching);
+    }
 }
 
 /// What was drawn: `Monte Carlo, 10,000 draws, uniform, seed 1`.
@@ -76,6 +95,9 @@ pub(super) fn draws(report: &SweepReport) -> String {
         report.plan.draw.name(),
         report.plan.seed
     );
+    if report.plan.vary == Vary::PerEvent {
+        text += ", every firing anew";
+    }
     if report.plan.tries > 1 {
         text += &format!(", {} tries a board", words::count(report.plan.tries));
     }

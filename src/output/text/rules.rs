@@ -1,6 +1,7 @@
 //! Rules that were not judged in every draw, and the margins of those without a failure.
 
 use super::paper::{Paper, Table, Tone};
+use super::search::Searching;
 use crate::findings::Question;
 use crate::output::words;
 use crate::scenario::Scenario;
@@ -73,8 +74,13 @@ pub(super) fn not_judged(paper: &mut Paper, scenario: &Scenario, report: &SweepR
     super::more(paper, rules.len().saturating_sub(MOST), "rules.csv");
 }
 
-/// Margins of rules with a number that no draw broke, smallest first; of one rule the step with the smallest.
-pub(super) fn margins(paper: &mut Paper, scenario: &Scenario, report: &SweepReport) {
+/// Margins of rules with a number that no draw broke, smallest first; of one rule the step with the smallest. Beside each
+/// the smallest that a directed search met at any of its steps.
+pub(super) fn margins(paper: &mut Paper, scenario: &Scenario, report: &SweepReport, searching: Option<Searching<'_>>) {
+    let same_rule = |rule: &RuleReport, number: u32| {
+        let key = |it: &Question| (it.rule, it.index, it.net);
+        report.rules.get(number as usize).is_some_and(|other| key(&other.question) == key(&rule.question))
+    };
     let mut least: Vec<(&RuleReport, i128, Span)> = Vec::new();
     for rule in &report.rules {
         let (Some(margin), Some(bound)) = (rule.margin, rule.question.bound) else { continue };
@@ -93,23 +99,29 @@ pub(super) fn margins(paper: &mut Paper, scenario: &Scenario, report: &SweepRepo
     }
     // a rule that one of its steps broke is among the findings
     least.retain(|(rule, margin, _)| rule.broken == 0 && *margin >= 0);
+    least.retain(|(rule, ..)| !searching.is_some_and(|it| it.broke(|number| same_rule(rule, number))));
     least.sort_by_key(|entry| entry.1);
     if least.is_empty() {
         return;
     }
     paper.heading(&format!("Smallest margins without a failure, in {}", words::many(report.samples, "draw")));
-    let mut table = Table::new().number("margin", 0).number("bound", 0).text("rule").text("step").number("sample", 1);
+    let mut table = Table::new().number("margin", 0);
+    if searching.is_some() {
+        table = table.number("by search", 0);
+    }
+    table = table.number("bound", 0).text("rule").text("step").number("sample", 1);
     for (rule, margin, bound) in least.iter().take(MOST) {
-        table.row(
-            Tone::Plain,
-            vec![
-                rounded(*margin),
-                bound.rounded(),
-                about(scenario, &rule.question, false),
-                words::step(scenario, rule.question.moment).unwrap_or("whole run").to_string(),
-                rule.margin_sample.map_or_else(String::new, |sample| sample.to_string()),
-            ],
-        );
+        let mut row = vec![rounded(*margin)];
+        if let Some(searching) = searching {
+            row.push(searching.margin(|number| same_rule(rule, number)).map_or_else(String::new, rounded));
+        }
+        row.extend([
+            bound.rounded(),
+            about(scenario, &rule.question, false),
+            words::step(scenario, rule.question.moment).unwrap_or("whole run").to_string(),
+            rule.margin_sample.map_or_else(String::new, |sample| sample.to_string()),
+        ]);
+        table.row(Tone::Plain, row);
     }
     paper.table(&table);
     super::more(paper, least.len().saturating_sub(MOST), "rules.csv");

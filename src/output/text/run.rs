@@ -6,7 +6,8 @@ use super::paper::{Paper, Table, Tone};
 use super::{notes, rules, steps};
 use crate::engine::{End, Window};
 use crate::findings::{Asked, Fact};
-use crate::output::words;
+use crate::instance::Firings;
+use crate::output::{races, words};
 use crate::review::RunReport;
 use crate::scenario::Scenario;
 
@@ -48,6 +49,11 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
         for fact in report.facts.iter().take(FACTS) {
             let (tone, words) = told(scenario, asked, report, fact);
             paper.item(tone, &words);
+            if let Some(pair) = report.race(scenario, asked, fact) {
+                for line in races::lines(scenario, &pair, 2 * (page.columns() - 8)) {
+                    paper.hang(4, 6, Tone::Plain, &line);
+                }
+            }
         }
         super::more(&mut paper, report.facts.len().saturating_sub(FACTS), "the JSON, with --json");
     }
@@ -61,6 +67,16 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
         super::more(&mut paper, report.not_judged.len().saturating_sub(FACTS), "the JSON, with --json");
     }
     paper.gap();
+    match &report.instance.firings {
+        None => {}
+        Some(Firings::Drawn(_)) => {
+            paper.say(0, Tone::Plain, "Every firing of a gate has a delay of its own, drawn anew.")
+        }
+        Some(Firings::Given(given)) => {
+            let many = words::many(given.len() as u64, "firing");
+            paper.say(0, Tone::Plain, &format!("{many} of this case may have delays of their own."));
+        }
+    }
     let events = words::many(report.trace.events, "event");
     let end = report.trace.end.from_start().rounded();
     paper.say(0, Tone::Plain, &format!("{events} until {end}. One run says nothing of other delays."));

@@ -2,12 +2,15 @@
 
 use super::paper::{Paper, Tone};
 use crate::output::words;
-use crate::sweep::{AtMost, SweepReport, UnseenMass};
+use crate::sweep::{AtMost, Stopped, SweepReport, UnseenMass};
 
 /// What was never seen, and what has not been seen yet: a few lines below the count of questions.
 pub(super) fn sure(paper: &mut Paper, report: &SweepReport) {
     if report.samples == 0 {
         return;
+    }
+    if let Some(stopped) = &report.stopped {
+        until(paper, report, stopped);
     }
     if !report.plan.draw.allows_intervals() {
         let draw = report.plan.draw.name();
@@ -27,6 +30,33 @@ pub(super) fn sure(paper: &mut Paper, report: &SweepReport) {
         let steps = words::many(report.unseen_untold, "step");
         let text = format!("In {steps} loop nets changed in too many orders to tell what was not seen yet.");
         paper.say(0, Tone::Unsure, &text);
+    }
+}
+
+/// Did it stop because it was sure, and how wide is what it says?
+fn until(paper: &mut Paper, report: &SweepReport, stopped: &Stopped) {
+    let (curve, most) = (&stopped.curve, words::count(report.plan.samples));
+    let looks = words::many(stopped.looks, "planned look");
+    match stopped.widest {
+        Some(widest) if curve.sure => {
+            let text = format!(
+                "Stopped after {} of at most {most} draws: no 95 % interval is wider than {} (asked for: {}). Intervals \
+                 allow for all {looks}.",
+                words::count(curve.looked),
+                words::three(widest),
+                curve.until
+            );
+            paper.say(0, Tone::Plain, &text);
+        }
+        Some(widest) => {
+            let text = format!(
+                "Not sure: the widest 95 % interval is {} wide (asked for: {}). Intervals allow for all {looks}.",
+                words::three(widest),
+                curve.until
+            );
+            paper.say(0, Tone::Unsure, &text);
+        }
+        None => paper.say(0, Tone::Unsure, "Not sure: there is no share with an interval."),
     }
 }
 

@@ -12,7 +12,7 @@ use crate::sweep::SweepReport;
 pub fn sweep(scenario: &Scenario, asked: &Asked, report: &SweepReport, verdict: &Verdict, page: &Page<'_>) -> String {
     let mut paper = page.paper();
     say_verdict(&mut paper, verdict);
-    body(&mut paper, page, scenario, asked, report);
+    body(&mut paper, page, scenario, asked, report, None, None);
     notes::notes(&mut paper, scenario);
     paper.finish()
 }

@@ -7,11 +7,13 @@ use super::marks::{Spot, Step};
 use crate::circuit::NetId;
 use crate::output::ink::SMALL;
 use crate::output::measure::cut_end;
-use crate::output::words;
+use crate::output::{races, words};
 use crate::time::Time;
 
 /// Most steps that the key lists.
 const KEY: usize = 60;
+/// Letters of a note that tells a path, about.
+const PATH: usize = 150;
 /// Most names that a note lists.
 const NAMED: usize = 8;
 /// Most entries of a list in the description.
@@ -33,6 +35,9 @@ pub(super) struct Seen<'a> {
 pub(super) fn notes(picture: &Picture<'_>, seen: &Seen<'_>) -> Vec<String> {
     let scenario = picture.scenario;
     let mut notes = Vec::new();
+    if let Some(pair) = &picture.race {
+        notes.extend(races::lines(scenario, pair, PATH));
+    }
     if seen.nets.is_empty() {
         notes.push("There is no net to show.".to_string());
     }

@@ -3,6 +3,7 @@
 use maud::{Markup, html};
 
 use super::Picture;
+use super::arrows;
 use super::flags::OFFSET;
 use super::frame::{Frame, LINE, Lane, MARGIN, SPACE, SWING, WIDTH};
 use super::lane::{Line, line, number};
@@ -39,6 +40,7 @@ pub(super) fn svg(picture: &Picture<'_>, frame: &Frame) -> String {
             }
             "\n" (axis(frame))
             "\n" (cuts(frame))
+            (arrows::draw(&frame.chains))
             "\n" (rests(frame))
             "\n" (labels_of_steps(picture, frame))
             @for (i, note) in frame.notes.iter().enumerate() {

@@ -1,5 +1,6 @@
 //! The geometry of one sheet: where every lane, mark and label goes. Nothing is written here.
 
+use super::arrows::{self, Chain};
 use super::axis::Axis;
 use super::captions::{self, Seen};
 use super::flags::{self, Flags};
@@ -68,6 +69,8 @@ pub(super) struct Frame {
     /// Top of the lanes.
     pub lanes_top: f64,
     pub lanes: Vec<Lane>,
+    /// The two paths that race.
+    pub chains: Vec<Chain>,
     /// Height of the hairline between inputs and gates.
     pub hairline: Option<f64>,
     /// Brackets of findings that are about no single net, and the base line of their caption.
@@ -143,6 +146,7 @@ impl Frame {
         let full_title = captions::title(picture, sheet);
         // bold letters are wider than the estimate
         let cut = cut_end(&full_title, 14.0, (WIDTH - 2.0 * MARGIN) / 1.15);
+        let chains = arrows::chains(picture, &lanes.lanes, &axis, range);
         Frame {
             title: cut.unwrap_or_else(|| full_title.clone()),
             full_title,
@@ -153,6 +157,7 @@ impl Frame {
             steps,
             flags,
             lanes_top,
+            chains,
             lanes: lanes.lanes,
             hairline: lanes.hairline,
             whole,

@@ -3,6 +3,7 @@
 //! A picture is a stack of [`Layer`]s on one time axis. It is split into sheets where it has more nets than are legible
 //! on one, and says which nets no sheet shows.
 
+mod arrows;
 mod axis;
 mod captions;
 mod choose;
@@ -15,7 +16,7 @@ mod marks;
 mod places;
 
 use crate::circuit::NetId;
-use crate::findings::Asked;
+use crate::findings::{Asked, RacePair};
 use crate::review::RunReport;
 use crate::scenario::Scenario;
 use crate::time::Time;
@@ -60,6 +61,8 @@ pub struct Picture<'a> {
     pub layers: Vec<Layer<'a>>,
     /// For which nets.
     pub nets: Nets,
+    /// The two paths that race, drawn from edge to edge on the front run.
+    pub race: Option<RacePair>,
     /// From when to when; `None` for the whole run.
     pub range: Option<(Time, Time)>,
     /// Begins every XML id in the picture, so that several pictures can stand in one page: letters, digits, `-`.
@@ -81,7 +84,7 @@ impl<'a> Picture<'a> {
     /// A picture of one run, with all its nets and all its time.
     pub fn of_run(scenario: &'a Scenario, asked: &'a Asked, run: &'a RunReport, id: &str) -> Picture<'a> {
         let layers = vec![Layer::Run(run)];
-        Picture { scenario, asked, layers, nets: Nets::All, range: None, id: id.to_string() }
+        Picture { scenario, asked, layers, nets: Nets::All, race: None, range: None, id: id.to_string() }
     }
 
     /// The run at the front.

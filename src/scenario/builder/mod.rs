@@ -24,7 +24,7 @@ pub use stimulus::MAX_MOMENTS;
 
 use crate::circuit::Function;
 use crate::delay::Marginal;
-use crate::scenario::{Begin, Fault, Faults, Limits, Mark, Plan, Scenario};
+use crate::scenario::{Begin, Fault, Faults, Limits, Mark, Plan, Scenario, Vary};
 use crate::time::{Span, Unit};
 use context::Context;
 use said::NewFunction;
@@ -78,8 +78,10 @@ pub struct Builder {
     limit_time: Option<Said<Amount>>,
     samples: Said<u64>,
     seed: u64,
+    search: Said<u64>,
     tries: Said<u64>,
     draw: Marginal,
+    vary: Vary,
     not_analysed: Vec<Said<String>>,
     notes: Vec<Said<String>>,
     faults: Faults,
@@ -123,8 +125,10 @@ impl Builder {
             limit_time: None,
             samples: Said::from(plan.samples),
             seed: plan.seed,
+            search: Said::from(plan.search),
             tries: Said::from(plan.tries),
             draw: plan.draw,
+            vary: plan.vary,
             not_analysed: Vec::new(),
             notes: Vec::new(),
             faults: Faults::default(),
@@ -288,6 +292,12 @@ impl Builder {
         self
     }
 
+    /// Runs of a directed search for each question, at least [`Plan::LEAST_SEARCH`]; 0: none; default 1,000.
+    pub fn search(&mut self, runs: impl Into<Said<u64>>) -> &mut Builder {
+        self.search = runs.into();
+        self
+    }
+
     /// Samples a board, at least 1; default 1.
     pub fn tries(&mut self, tries: impl Into<Said<u64>>) -> &mut Builder {
         self.tries = tries.into();
@@ -297,6 +307,12 @@ impl Builder {
     /// How delays spread over their ranges; default uniform.
     pub fn draw(&mut self, draw: Marginal) -> &mut Builder {
         self.draw = draw;
+        self
+    }
+
+    /// How often the delay of a gate is drawn; default once a board.
+    pub fn vary(&mut self, vary: Vary) -> &mut Builder {
+        self.vary = vary;
         self
     }
 
@@ -422,6 +438,11 @@ impl Builder {
         if self.tries.what == 0 {
             context.faults.add(self.tries.mark, "a board without tries", "give each board at least 1 try");
         }
-        Plan { samples: self.samples.what, seed: self.seed, tries: self.tries.what, draw: self.draw }
+        if (1..Plan::LEAST_SEARCH).contains(&self.search.what) {
+            let remedy = format!("give each question at least {} runs, or 0 for no search", Plan::LEAST_SEARCH);
+            context.faults.add(self.search.mark, "a search of so few runs finds nothing", &remedy);
+        }
+        let (samples, tries, search) = (self.samples.what, self.tries.what, self.search.what);
+        Plan { samples, seed: self.seed, tries, draw: self.draw, vary: self.vary, search }
     }
 }
