@@ -5,8 +5,8 @@ use stillgate::control::Control;
 use stillgate::engine::Program;
 use stillgate::findings::Asked;
 use stillgate::proof::{
-    Budget, Call, Ended, Explored, Mode, Moves, Nothing, Plant, Points, Settles, Spend, Subject, System, Watch, case,
-    explore, one_draw, prove,
+    Budget, Call, Ended, Explored, Mode, Moves, Nothing, Plant, Points, Settles, Spend, System, Watch, case, explore,
+    one_draw, prove,
 };
 use stillgate::reader;
 use stillgate::scenario::Scenario;
@@ -226,8 +226,7 @@ fn claims(name: &str) -> std::collections::BTreeMap<(&'static str, &'static str)
     assert_eq!(proof.claims.len(), asked.questions.len());
     let mut counts = std::collections::BTreeMap::new();
     for claim in &proof.claims {
-        let Subject::Question(question) = claim.subject else { panic!("{claim:?}") };
-        let rule = asked.questions[question as usize].rule.word();
+        let rule = asked.questions[claim.question as usize].rule.word();
         *counts.entry((rule, claim.call.word())).or_insert(0) += 1;
         // a reason for what is open, a case for what is refuted
         assert_eq!(claim.reason.is_some(), matches!(claim.call, Call::Undecided | Call::NotCovered), "{claim:?}");
@@ -237,8 +236,12 @@ fn claims(name: &str) -> std::collections::BTreeMap<(&'static str, &'static str)
     let sampled = Scenario { plan: stillgate::scenario::Plan { samples: 300, ..scenario.plan }, ..scenario.clone() };
     let sweep = stillgate::review::sweep(&sampled, &program, &asked, 1, &Control::default()).unwrap();
     for claim in proof.claims.iter().filter(|claim| claim.call == Call::Proved) {
-        let Subject::Question(question) = claim.subject else { continue };
-        assert_eq!(sweep.rules[question as usize].broken, 0, "{name}: {claim:?} {:?}", asked.questions[question as usize]);
+        let question = claim.question;
+        assert_eq!(
+            sweep.rules[question as usize].broken, 0,
+            "{name}: {claim:?} {:?}",
+            asked.questions[question as usize]
+        );
     }
     for window in &proof.windows {
         let seen = &sweep.windows[window.moment as usize];
@@ -247,7 +250,10 @@ fn claims(name: &str) -> std::collections::BTreeMap<(&'static str, &'static str)
         }
         if let (Some((least, most)), Some(settling)) = (window.settling, &seen.settling) {
             assert!(settling.min.is_none_or(|min| least <= min), "{name}: {window:?} {settling:?}");
-            assert!(window.settling_but_for_ties || settling.max_at_least || settling.max <= most, "{name}: {window:?}");
+            assert!(
+                window.settling_but_for_ties || settling.max_at_least || settling.max <= most,
+                "{name}: {window:?}"
+            );
         }
     }
     counts

@@ -36,6 +36,8 @@ pub enum Command {
     Limit(Limiting),
     /// All stable states, without delays
     States(Looking),
+    /// Bounded-delay verdicts: what holds for every delay in the ranges, and delays that break the rest
+    Prove(Proving),
     /// Reads the scenario, reports errors, prints what it understood
     Check(Checking),
 }
@@ -225,6 +227,26 @@ pub struct Running {
     #[arg(long, value_name = "A,B,...", value_delimiter = ',')]
     pub nets: Vec<String>,
     /// Exit with 1 if a rule is broken or something could not be judged in this run
+    #[arg(long)]
+    pub strict: bool,
+}
+
+#[derive(Debug, Args)]
+pub struct Proving {
+    #[command(flatten)]
+    pub input: Input,
+    #[command(flatten)]
+    pub folder: Folder,
+    /// Zones that one exploration may keep; beyond that its claims are undecided
+    #[arg(long, value_name = "N", default_value_t = 100_000, value_parser = clap::value_parser!(u64).range(1..=1 << 32))]
+    pub zones: u64,
+    /// MiB that one exploration may take; beyond that its claims are undecided
+    #[arg(long, value_name = "N", default_value_t = 1024, value_parser = clap::value_parser!(u64).range(1..=1 << 20))]
+    pub memory: u64,
+    /// Seconds for the whole proof; beyond that what is left is undecided, and results depend on the machine
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(1..=1 << 32))]
+    pub seconds: Option<u64>,
+    /// Exit with 1 unless every claim is proved
     #[arg(long)]
     pub strict: bool,
 }

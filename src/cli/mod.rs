@@ -5,6 +5,7 @@ mod check;
 mod common;
 mod limit;
 mod merge;
+mod prove;
 mod review;
 mod run;
 mod states;
@@ -34,6 +35,7 @@ pub fn main() -> ExitCode {
         Command::Merge(it) => merge::run(&it),
         Command::Limit(it) => limit::run(&it),
         Command::States(it) => states::run(&it),
+        Command::Prove(it) => prove::run(&it),
         Command::Check(it) => check::run(&it),
     };
     match done {

@@ -1,7 +1,7 @@
 //! From numbers to the names and words that every output shares.
 
 use crate::circuit::{GateId, NetId};
-use crate::findings::{Asked, Fact, Subject};
+use crate::findings::{Asked, Fact, Question, Subject};
 use crate::instance::{Quantity, Target, Which};
 use crate::review::Cut;
 pub(super) use crate::review::grouped as count;
@@ -116,6 +116,21 @@ pub(super) fn cut(cut: Cut) -> String {
         Cut::Events(events) => format!("budget of {} ran out", many(events, "event")),
         Cut::Interrupted => "interrupted".to_string(),
     }
+}
+
+/// A question in words: `timing "dead time"`, `glitch_free lamp after "step 3"`.
+pub(super) fn question(scenario: &Scenario, question: &Question) -> String {
+    let mut text = question.rule.word().to_string();
+    match (&question.name, question.net, &question.pattern) {
+        (Some(name), _, _) => text += &format!(" \"{name}\""),
+        (None, Some(name), _) => text += &format!(" {}", net(scenario, name)),
+        (None, None, Some(pattern)) => text += &format!(" {}", pattern.words(&scenario.circuit)),
+        (None, None, None) => {}
+    }
+    if let Some(label) = step(scenario, question.moment) {
+        text += &format!(" after \"{label}\"");
+    }
+    text
 }
 
 /// The measured value of a fact: a time, or a share of a delay.

@@ -61,20 +61,11 @@ impl Variation {
     }
 }
 
-/// What is claimed.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
-pub enum Subject {
-    /// The question of this number (in [`crate::findings::Asked::questions`]) is answered well in every run.
-    Question(u32),
-    /// The window of this moment comes to rest in every run.
-    Rests(u32),
-}
-
 /// One claim.
 #[derive(Clone, Debug)]
 pub struct Claim {
-    /// What is claimed.
-    pub subject: Subject,
+    /// That the question of this number (in [`crate::findings::Asked::questions`]) is answered well in every run.
+    pub question: u32,
     /// How it came out.
     pub call: Call,
     /// Refuted only by exactly equal times.
@@ -100,6 +91,20 @@ pub struct WindowProof {
     pub settling_below: bool,
     /// Does the greatest leave out what takes exactly equal times?
     pub settling_but_for_ties: bool,
+}
+
+impl Proof {
+    /// Names for the files of the witnesses, by claim.
+    pub fn witness_files(&self) -> Vec<Option<String>> {
+        let mut number = 0;
+        let name = |claim: &Claim| {
+            claim.witness.as_ref().map(|_| {
+                number += 1;
+                format!("refuted-{number}.toml")
+            })
+        };
+        self.claims.iter().map(name).collect()
+    }
 }
 
 /// What a proof says.

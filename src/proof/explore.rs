@@ -16,6 +16,11 @@ use super::watch::{Arrival, Block, Fate, Watch};
 use super::zone::{self, Matrix};
 use crate::control::Control;
 
+/// Joins of one zone until what still grows is given up.
+const JOINS: u32 = 32;
+/// Zones looked at, for each that may be kept: those that are joined are looked at again.
+const EXPANDED: u64 = 8;
+
 /// The origin of a window that did not begin at rest, or of none.
 pub const NOWHERE: u32 = u32::MAX;
 
@@ -279,6 +284,8 @@ struct Explorer<'a, W, S> {
     state_numbers: FxHashMap<Box<[u64]>, u32>,
     found: Explored,
     expanded: u64,
+    /// How often zones were joined to that of a node.
+    joins: FxHashMap<u32, u32>,
     // working memory
     work: Matrix,
     entry: Matrix,
@@ -319,6 +326,7 @@ impl<'a, W: Watch, S: Semantics> Explorer<'a, W, S> {
             state_numbers: FxHashMap::default(),
             found,
             expanded: 0,
+            joins: FxHashMap::default(),
             work: Matrix::default(),
             entry: Matrix::default(),
             lasting: Matrix::default(),
@@ -406,6 +414,9 @@ impl<'a, W: Watch, S: Semantics> Explorer<'a, W, S> {
             return;
         }
         self.expanded += 1;
+        if self.expanded > self.budget.zones.saturating_mul(EXPANDED) {
+            self.end(Ended::Zones);
+        }
         if self.expanded & 0xFFF == 0 {
             if self.budget.control.cancelled() {
                 self.end(Ended::Cancelled);
@@ -933,7 +944,12 @@ impl<'a, W: Watch, S: Semantics> Explorer<'a, W, S> {
                 Merge::Hull => {
                     known = Some(*node);
                     joined = !zone::within(&self.entry.bounds, kept);
-                    zone::hull(kept, &self.entry.bounds);
+                    let often = self.joins.entry(*node).or_insert(0);
+                    *often += u32::from(joined);
+                    match *often > JOINS {
+                        true => zone::widen(kept, &self.entry.bounds),
+                        false => zone::hull(kept, &self.entry.bounds),
+                    }
                     true
                 }
             }

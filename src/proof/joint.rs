@@ -3,7 +3,8 @@
 //! A set is reducible if some part of it can fire first, at the same instant, such that afterwards every gate of the rest is
 //! still excited, and every gate outside that is excited before and after the whole set is excited in between, too (else it
 //! would begin anew); a step that is in the set is in that part. Then firing the parts one after the other does the same.
-//! Irreducible sets hang together: of any two parts one reads the other, or an excited gate reads both.
+//! Irreducible sets hang together: of any two parts one reads the other, or an excited gate reads both. And each member,
+//! fired alone, would disable something: else it could go first (a step apart: only with it can others go).
 
 use rustc_hash::{FxHashMap, FxHashSet};
 
@@ -20,6 +21,8 @@ const SETS: usize = 20_000;
 pub(super) struct Joint {
     known: FxHashMap<u64, bool>,
     asked: FxHashSet<u64>,
+    /// For each agent the gates (as agents) that are no longer excited once it has fired alone.
+    victims: Vec<u64>,
 }
 
 impl Joint {
@@ -43,10 +46,19 @@ impl Joint {
             let all = info.agents.iter().enumerate();
             all.filter(|(_, agent)| is(&agent.mover)).fold(0u64, |all, (i, _)| all | 1 << i)
         };
+        if self.victims.is_empty() {
+            self.victims = (0..info.agents.len()).map(|i| victims(plant, key, info, i)).collect();
+        }
+        let harmless = |mask: u64| (0..64).filter(|i| mask >> i & 1 == 1 && self.victims[*i] == 0).fold(0u64, |all, i| all | 1 << i);
         let steps = of(|mover| matches!(mover, Mover::Step(_)));
+        let skewed = steps != 0 && plant.steps[key.steps()..].iter().any(|step| step.skew > 0);
+        // a step that disables nothing goes first; beside one that does all others may matter
+        let stepping = enabled & steps & !if skewed { 0 } else { harmless(enabled & steps) };
+        let alone = enabled & !steps & !harmless(enabled & !steps);
         let late = of(|mover| matches!(mover, Mover::Late(_)));
         let mut complete = true;
-        let mut open: Vec<u64> = (0..info.agents.len()).filter(|i| enabled >> i & 1 == 1).map(|i| 1 << i).collect();
+        let first = |mask: u64| (0..info.agents.len()).filter(move |i| mask >> i & 1 == 1).map(|i| 1u64 << i);
+        let mut open: Vec<u64> = first(alone).chain(first(stepping)).collect();
         let mut seen: FxHashSet<u64> = open.iter().copied().collect();
         while let Some(set) = open.pop() {
             let mut around = 0;
@@ -55,12 +67,12 @@ impl Joint {
                 around |= info.near[rest.trailing_zeros() as usize];
                 rest &= rest - 1;
             }
-            let mut next = around & enabled & !set;
+            let others = if set & steps != 0 { (enabled & !steps) | (set & steps) } else { alone };
+            let mut next = around & others & !set;
             while next != 0 {
                 let grown = set | 1 << next.trailing_zeros();
                 next &= next - 1;
-                let stepping = (grown & steps).count_ones();
-                if stepping > 1 || stepping == 1 && grown & late != 0 {
+                if grown & steps != 0 && grown & late != 0 {
                     continue;
                 }
                 if !seen.insert(grown) {
@@ -71,7 +83,8 @@ impl Joint {
                     continue;
                 }
                 open.push(grown);
-                self.known.entry(grown).or_insert_with(|| is_irreducible(plant, key, info, grown));
+                let victims = &self.victims;
+                self.known.entry(grown).or_insert_with(|| is_irreducible(plant, key, info, grown, victims));
             }
         }
         complete
@@ -129,6 +142,21 @@ fn near(plant: &Plant, info: &Info, key: Key<'_>) -> Vec<u64> {
     near
 }
 
+/// The gates (as agents) that are no longer excited once an agent has fired alone.
+fn victims(plant: &Plant, key: Key<'_>, info: &Info, agent: usize) -> u64 {
+    let values = after(plant, key, info, 1 << agent);
+    let mut victims = 0;
+    for (i, other) in info.agents.iter().enumerate() {
+        if let Mover::Gate(gate) = other.mover
+            && i != agent
+            && !excited(plant, &values, gate as usize)
+        {
+            victims |= 1 << i;
+        }
+    }
+    victims
+}
+
 /// Values after some agents have fired.
 fn after(plant: &Plant, key: Key<'_>, info: &Info, set: u64) -> Vec<u64> {
     let mut values = key.values().to_vec();
@@ -143,7 +171,7 @@ fn after(plant: &Plant, key: Key<'_>, info: &Info, set: u64) -> Vec<u64> {
     values
 }
 
-fn is_irreducible(plant: &Plant, key: Key<'_>, info: &Info, set: u64) -> bool {
+fn is_irreducible(plant: &Plant, key: Key<'_>, info: &Info, set: u64, victims: &[u64]) -> bool {
     let gates = |mask: u64, inside: bool| {
         info.agents.iter().enumerate().filter_map(move |(i, agent)| match agent.mover {
             Mover::Gate(gate) if (mask >> i & 1 == 1) == inside => Some(gate as usize),
@@ -160,6 +188,15 @@ fn is_irreducible(plant: &Plant, key: Key<'_>, info: &Info, set: u64) -> bool {
     let whole = after(plant, key, info, set);
     // gates outside that are excited before and after
     let kept: Vec<usize> = gates(set, false).filter(|gate| excited(plant, &whole, *gate)).collect();
+    // one that alone disables neither a member nor a gate that is kept could go first
+    let kept_mask = info.agents.iter().enumerate().fold(0u64, |all, (i, agent)| match agent.mover {
+        Mover::Gate(gate) if kept.contains(&(gate as usize)) => all | 1 << i,
+        _ => all,
+    });
+    let members = if step == 0 { set } else { step };
+    if (0..info.agents.len()).any(|i| members >> i & 1 == 1 && victims[i] & (set | kept_mask) == 0) {
+        return false;
+    }
     let mut part = (set - 1) & set;
     while part != 0 {
         if part & step == step {

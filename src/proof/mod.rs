@@ -16,7 +16,7 @@ mod watches;
 mod witness;
 pub mod zone;
 
-pub use claim::{Call, Claim, Proof, Subject, Variation, WindowProof};
+pub use claim::{Call, Claim, Proof, Variation, WindowProof};
 pub use cycles::{Cycle, RestVerdict, comes_to_rest};
 pub use explore::{
     Budget, Ended, Exact, Explored, Fired, Merge, Mode, NOWHERE, Rest, Semantics, explore, explore_under,
@@ -26,5 +26,7 @@ pub use plant::{NotCovered, Plant, PlantGate, PlantPlace, PlantStep, PlantWire, 
 pub use prove::{Spend, prove};
 pub use system::{Form, Point, Points, Row, Sense, System, Unknown};
 pub use watch::{Arrival, Block, Fate, Nothing, SAME, Watch};
-pub use watches::{Answered, Apart, BeforeRest, Edge, Late, Moved, Moves, Settles, Shows, ShowsLonger, Swallows, Width};
+pub use watches::{
+    Answered, Apart, BeforeRest, Edge, Late, Moved, Moves, Settles, Shows, ShowsLonger, Swallows, Width,
+};
 pub use witness::{Case, case, one_draw};

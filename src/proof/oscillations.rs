@@ -2,7 +2,7 @@
 
 use std::collections::BTreeMap;
 
-use super::claim::{Call, Claim, Subject, Variation};
+use super::claim::{Call, Claim, Variation};
 use super::cycles::{Cycle, RestVerdict, comes_to_rest};
 use super::prove::{Prover, Unsaid, World};
 use crate::instance::{Instance, Which};
@@ -33,14 +33,8 @@ impl Prover<'_> {
 
     /// What the oscillations of one part say of a question.
     fn endless(&self, world: &World, cycles: &[Cycle], question: u32) -> Claim {
-        let mut claim = Claim {
-            subject: Subject::Question(question),
-            call: Call::Proved,
-            but_for_ties: false,
-            variation: None,
-            witness: None,
-            reason: None,
-        };
+        let mut claim =
+            Claim { question, call: Call::Proved, but_for_ties: false, variation: None, witness: None, reason: None };
         if self.asked.questions[question as usize].wants_oscillation {
             claim.call = Call::NotCovered;
             claim.reason = Some("the proof does not know oscillations that are required".to_string());

@@ -30,7 +30,11 @@ struct Part {
 
 impl Part {
     /// The states at rest of a window, by the state that it began in.
-    fn outcomes(&self, found: &Explored, steps: &std::ops::Range<u32>) -> BTreeMap<Box<[u64]>, BTreeMap<Box<[u64]>, u32>> {
+    fn outcomes(
+        &self,
+        found: &Explored,
+        steps: &std::ops::Range<u32>,
+    ) -> BTreeMap<Box<[u64]>, BTreeMap<Box<[u64]>, u32>> {
         let mut all: BTreeMap<Box<[u64]>, BTreeMap<Box<[u64]>, u32>> = BTreeMap::new();
         let these = found.rests.iter().filter(|(rest, _)| steps.contains(&rest.steps) && rest.origin != NOWHERE);
         for (rest, node) in these {
@@ -89,7 +93,8 @@ impl Prover<'_> {
             let part = &parts[with[0].0].world.plant;
             let inside = alternatives.iter().flatten().all(|(net, _)| part.local(*net).is_some());
             if !inside {
-                let reason = "the alternatives of the step name nets of another part than the one that chooses".to_string();
+                let reason =
+                    "the alternatives of the step name nets of another part than the one that chooses".to_string();
                 return Err(Unsaid { call: Call::Undecided, reason });
             }
         }
@@ -223,7 +228,7 @@ impl Prover<'_> {
             let early = |_: &Question, steps: std::ops::Range<u32>, hit: u32| steps.start == hit;
             self.by_window(&world, &BeforeRest, questions, &early)?;
             for claim in self.proof.claims.drain(from..) {
-                let super::claim::Subject::Question(question) = claim.subject else { continue };
+                let question = claim.question;
                 let graver = worst.get(&question).is_none_or(|it| it.call.severity() < claim.call.severity());
                 if graver {
                     worst.insert(question, claim);

@@ -8,7 +8,7 @@
 use std::collections::BTreeMap;
 use std::time::{Duration, Instant};
 
-use super::claim::{Call, Claim, Proof, Subject, Variation, WindowProof};
+use super::claim::{Call, Claim, Proof, Variation, WindowProof};
 use super::cycles::{RestVerdict, comes_to_rest};
 use super::explore::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, explore};
 use super::key::bit;
@@ -59,7 +59,7 @@ pub fn prove(scenario: &Scenario, program: &Program, asked: &Asked, spend: &Spen
     let mut prover = Prover { scenario, program, asked, budget, proof: Proof::default() };
     prover.questions();
     prover.windows();
-    prover.proof.claims.sort_by_key(|claim| claim.subject);
+    prover.proof.claims.sort_by_key(|claim| claim.question);
     prover.proof
 }
 
@@ -144,7 +144,8 @@ impl<'a> Prover<'a> {
             return Ok(Looked::Never);
         }
         let exact = self.explore(world, watch, Mode::default())?;
-        let hits: BTreeMap<u32, u32> = exact.hits.iter().filter(|(hit, _)| wanted(**hit)).map(|(h, n)| (*h, *n)).collect();
+        let hits: BTreeMap<u32, u32> =
+            exact.hits.iter().filter(|(hit, _)| wanted(**hit)).map(|(h, n)| (*h, *n)).collect();
         if hits.is_empty() {
             return Ok(Looked::Never);
         }
@@ -162,14 +163,7 @@ impl<'a> Prover<'a> {
     }
 
     pub(super) fn claim(&mut self, question: u32, call: Call) -> &mut Claim {
-        let claim = Claim {
-            subject: Subject::Question(question),
-            call,
-            but_for_ties: false,
-            variation: None,
-            witness: None,
-            reason: None,
-        };
+        let claim = Claim { question, call, but_for_ties: false, variation: None, witness: None, reason: None };
         self.proof.claims.push(claim);
         self.proof.claims.last_mut().expect("it was just added")
     }
@@ -220,7 +214,11 @@ impl<'a> Prover<'a> {
                     kind: spec.edge,
                 };
                 let (from, to) = (edge(&timing.from), edge(&timing.to));
-                let min = timing.min.filter(|min| *min > Span::ZERO).map(|min| Apart { from, to, min: world.plant.ticks(min) });
+                let min = timing.min.filter(|min| *min > Span::ZERO).map(|min| Apart {
+                    from,
+                    to,
+                    min: world.plant.ticks(min),
+                });
                 let must = !self.scenario.circuit.is_input(timing.to.net);
                 let max = timing.max.map(|max| Answered { from, to, max: world.plant.ticks(max), must });
                 match (min, max) {
@@ -232,7 +230,11 @@ impl<'a> Prover<'a> {
                         self.whole_run(&world, &max, questions[0])?;
                         // the worse of both answers for the rule
                         if let Some(first) = first
-                            && self.proof.claims.last().is_some_and(|second| first.call.severity() > second.call.severity())
+                            && self
+                                .proof
+                                .claims
+                                .last()
+                                .is_some_and(|second| first.call.severity() > second.call.severity())
                         {
                             *self.proof.claims.last_mut().expect("there is one") = first;
                         }
@@ -277,18 +279,23 @@ impl<'a> Prover<'a> {
             RuleKey::NeverAtRest => {
                 let state = rules.never_at_rest[index as usize].state.clone();
                 let nets: Vec<NetId> = state.iter().map(|(net, _)| *net).collect();
-                self.rests(&nets, questions, &|plant, values, _| !local(plant, &state).iter().all(|(n, v)| bit(values, *n as usize) == *v))
+                self.rests(&nets, questions, &|plant, values, _| {
+                    !local(plant, &state).iter().all(|(n, v)| bit(values, *n as usize) == *v)
+                })
             }
             RuleKey::Expect => {
                 // each step expects something of its own
                 for question in questions {
-                    let Some(Pattern::OneOf(expect)) = &self.asked.questions[*question as usize].pattern else { continue };
+                    let Some(Pattern::OneOf(expect)) = &self.asked.questions[*question as usize].pattern else {
+                        continue;
+                    };
                     let mut nets: Vec<NetId> = expect.alternatives.iter().flatten().map(|(net, _)| *net).collect();
                     nets.sort_unstable();
                     nets.dedup();
                     let alternatives = expect.alternatives.clone();
                     let fits = |plant: &Plant, values: &[u64], _: u32| {
-                        let fit = |it: &Alternative| local(plant, it).iter().all(|(n, v)| bit(values, *n as usize) == *v);
+                        let fit =
+                            |it: &Alternative| local(plant, it).iter().all(|(n, v)| bit(values, *n as usize) == *v);
                         alternatives.iter().any(fit)
                     };
                     if let Err(unsaid) = self.rests(&nets, &[*question], &fits) {
@@ -330,7 +337,8 @@ impl<'a> Prover<'a> {
         let ranges: Vec<(u32, std::ops::Range<u32>)> =
             questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
         let asked = self.asked;
-        let wanted = |hit: u32| ranges.iter().any(|(q, steps)| breaks(&asked.questions[*q as usize], steps.clone(), hit));
+        let wanted =
+            |hit: u32| ranges.iter().any(|(q, steps)| breaks(&asked.questions[*q as usize], steps.clone(), hit));
         match self.look(world, watch, &wanted)? {
             Looked::Never => {
                 for question in questions {
@@ -340,8 +348,11 @@ impl<'a> Prover<'a> {
             Looked::Hits { found, hits, ties } => {
                 for (question, steps) in &ranges {
                     let ask = &asked.questions[*question as usize];
-                    let of: Vec<(u32, bool)> =
-                        hits.iter().filter(|(hit, _)| breaks(ask, steps.clone(), **hit)).map(|(hit, node)| (*node, ties[hit])).collect();
+                    let of: Vec<(u32, bool)> = hits
+                        .iter()
+                        .filter(|(hit, _)| breaks(ask, steps.clone(), **hit))
+                        .map(|(hit, node)| (*node, ties[hit]))
+                        .collect();
                     match of.is_empty() {
                         true => {
                             self.claim(*question, Call::Proved);
@@ -380,7 +391,10 @@ impl<'a> Prover<'a> {
             for claim in &mut self.proof.claims[from..] {
                 if claim.call == Call::Undecided {
                     claim.call = Call::NotCovered;
-                    claim.reason = Some("that glitches shorter than a bound are tolerated is not part of the proof; it can glitch".into());
+                    claim.reason = Some(
+                        "that glitches shorter than a bound are tolerated is not part of the proof; it can glitch"
+                            .into(),
+                    );
                 }
             }
         }
@@ -389,7 +403,9 @@ impl<'a> Prover<'a> {
 
     fn edges(&mut self, questions: &[u32]) -> Result<(), Unsaid> {
         for question in questions {
-            let Some(Pattern::Count(count)) = self.asked.questions[*question as usize].pattern.clone() else { continue };
+            let Some(Pattern::Count(count)) = self.asked.questions[*question as usize].pattern.clone() else {
+                continue;
+            };
             let world = self.world(&[count.net], &[])?;
             let most = count.most.max(count.least);
             if most > 100 {
@@ -415,14 +431,20 @@ impl<'a> Prover<'a> {
         let mut bounds = vec![None; world.plant.steps.len() + 1];
         for question in questions {
             let first = self.steps_of(&world.plant, *question).start;
-            bounds[first as usize] = self.asked.questions[*question as usize].bound.map(|bound| world.plant.ticks(bound));
+            bounds[first as usize] =
+                self.asked.questions[*question as usize].bound.map(|bound| world.plant.ticks(bound));
         }
         let watch = Late { net: world.plant.local(net).expect("the cone holds its nets"), bounds };
         self.by_window(&world, &watch, questions, &|_, steps, hit| steps.start == hit)
     }
 
     /// Questions about where nets rest. `good` says whether values (with the origin of the window) are allowed.
-    pub(super) fn rests(&mut self, nets: &[NetId], questions: &[u32], good: &dyn Fn(&Plant, &[u64], u32) -> bool) -> Result<(), Unsaid> {
+    pub(super) fn rests(
+        &mut self,
+        nets: &[NetId],
+        questions: &[u32],
+        good: &dyn Fn(&Plant, &[u64], u32) -> bool,
+    ) -> Result<(), Unsaid> {
         let world = self.world(nets, &[])?;
         let ranges: Vec<(u32, std::ops::Range<u32>)> =
             questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
@@ -446,7 +468,8 @@ impl<'a> Prover<'a> {
         }
         let exact = self.explore(&world, &Nothing, Mode::default())?;
         let apart = self.explore(&world, &Nothing, Mode { joint: false, ..Mode::default() })?;
-        let values = |found: &Explored, rest: super::explore::Rest| (rest.steps, found.states[rest.state as usize].clone());
+        let values =
+            |found: &Explored, rest: super::explore::Rest| (rest.steps, found.states[rest.state as usize].clone());
         for (question, steps) in &ranges {
             let all = bad(&exact, steps);
             if all.is_empty() {
@@ -582,9 +605,9 @@ impl<'a> Prover<'a> {
         self.explore(&world, &watch, Mode { joint, ..Mode::default() })?;
         for (taken, window) in windows.iter_mut().enumerate() {
             let figures = watch.figures.borrow();
-            let these = figures.get(&(taken as u32)).map(|[least, most]| {
-                (world.plant.span(least.0), world.plant.span(most.0), !most.1)
-            });
+            let these = figures
+                .get(&(taken as u32))
+                .map(|[least, most]| (world.plant.span(least.0), world.plant.span(most.0), !most.1));
             window.settle(these, ties);
         }
         Ok(())

@@ -167,7 +167,9 @@ impl Program {
         for (variable, factor) in &self.objective {
             let factor = i128::from(*factor);
             match it.free.iter().position(|free| free == variable) {
-                Some(column) => objective[column] = objective[column].checked_sub(factor.checked_mul(it.denominator)?)?,
+                Some(column) => {
+                    objective[column] = objective[column].checked_sub(factor.checked_mul(it.denominator)?)?
+                }
                 None => {
                     let row = it.basic.iter().position(|basic| basic == variable)?;
                     for (c, cell) in objective.iter_mut().enumerate() {

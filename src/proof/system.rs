@@ -215,7 +215,8 @@ impl System {
                 Solved::Infeasible => return Points::None,
                 Solved::Unbounded | Solved::GaveUp => return Points::GaveUp,
             };
-            let tight: Vec<usize> = strict.iter().filter(|(_, row)| best.priced[*row]).map(|(number, _)| *number).collect();
+            let tight: Vec<usize> =
+                strict.iter().filter(|(_, row)| best.priced[*row]).map(|(number, _)| *number).collect();
             if best.objective > 0 || strict.is_empty() {
                 let values = (0..slack)
                     .map(|unknown| best.values[unknown] + i128::from(self.ranges[unknown].min) * best.denominator)
@@ -268,7 +269,8 @@ impl Walk<'_> {
                     PlantPlace::After(range) => before.plus(self.unknown(place, range)),
                     PlantPlace::Rest(wait) => {
                         // rest begins with the last event
-                        let rest = number.checked_sub(1).map(|last| self.system.times[last].clone()).unwrap_or_default();
+                        let rest =
+                            number.checked_sub(1).map(|last| self.system.times[last].clone()).unwrap_or_default();
                         for signal in 0..self.last.len() {
                             if let Some(block) = self.last[signal].filter(|block| block + 1 < number) {
                                 let form = self.system.times[block].minus(&rest);
@@ -328,7 +330,8 @@ impl Walk<'_> {
         let time = time.unwrap_or_default();
         let step = taken > self.steps;
         let rests = step && matches!(plant.steps[self.steps].place, PlantPlace::Rest(_));
-        let changed: Vec<usize> = (0..plant.signals()).filter(|s| bit(&self.values, *s) != bit(&block.values, *s)).collect();
+        let changed: Vec<usize> =
+            (0..plant.signals()).filter(|s| bit(&self.values, *s) != bit(&block.values, *s)).collect();
 
         // what came before and has to do with it
         let mut earlier: Vec<usize> = Vec::new();
@@ -357,7 +360,8 @@ impl Walk<'_> {
         }
         // what pends and hears of it, or must wait for the step
         for gate in 0..plant.gates.len() as u32 {
-            let hears = step && !rests || plant.gates[gate as usize].reads.iter().any(|read| changed.contains(&(read.0 as usize)));
+            let hears = step && !rests
+                || plant.gates[gate as usize].reads.iter().any(|read| changed.contains(&(read.0 as usize)));
             if let (true, Some(since)) = (hears, self.since[gate as usize].clone())
                 && !block.movers.contains(&Mover::Gate(gate))
             {

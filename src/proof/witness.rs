@@ -1,9 +1,9 @@
 //! From a point of a system to a case that can be run.
 
+use super::Fired;
 use super::key::Mover;
 use super::plant::Plant;
 use super::system::{Point, System, Unknown};
-use super::Fired;
 use crate::instance::{Instance, Which};
 use crate::scenario::{Place, Scenario};
 use crate::time::Span;
@@ -31,7 +31,14 @@ pub fn one_draw<'a>(scenario: &'a Scenario, plant: &'a Plant) -> impl Fn(Unknown
 }
 
 /// The case of a point of the system of a trace. `start` are the values of all signals where the trace begins.
-pub fn case(scenario: &Scenario, plant: &Plant, system: &System, point: &Point, trace: &[Fired], start: &[u64]) -> Case {
+pub fn case(
+    scenario: &Scenario,
+    plant: &Plant,
+    system: &System,
+    point: &Point,
+    trace: &[Fired],
+    start: &[u64],
+) -> Case {
     let mut instance = Instance::of(scenario, &Which::Typ);
     let mut exact = true;
     let mut span = |value: i128| {

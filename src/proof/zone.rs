@@ -182,6 +182,16 @@ pub fn hull(a: &mut [Code], b: &[Code]) {
     }
 }
 
+/// As [`hull`], but a bound that would have to give way is given up, so that joining comes to an end (widening; Cousot and
+/// Cousot 1977). The matrix may not be closed then: it holds no less, and perhaps more than it need.
+pub fn widen(a: &mut [Code], b: &[Code]) {
+    for (a, b) in a.iter_mut().zip(b) {
+        if *b > *a {
+            *a = FREE;
+        }
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

@@ -14,6 +14,7 @@ mod races;
 mod review;
 mod run;
 mod search;
+mod prove;
 mod states;
 mod sweep;
 mod why;
@@ -23,6 +24,7 @@ pub use limit::{limit, limit_map};
 pub use part::part;
 pub use review::review;
 pub use run::run;
+pub use prove::prove;
 pub use states::states;
 pub use sweep::sweep;
 

@@ -60,8 +60,7 @@ impl Watch for Apart {
         let since_to = block.row + usize::from(state & 1 == 1);
         let runs = state & 1 == 1;
         let just = state & 2 != 0 && block.zone.at(0, since_to) == AT_MOST_ZERO;
-        let close = to && runs && may_be_below(block.zone, block.row, self.min)
-            || !same_net && from && (to || just);
+        let close = to && runs && may_be_below(block.zone, block.row, self.min) || !same_net && from && (to || just);
         if close {
             hit(steps);
         }

@@ -108,7 +108,9 @@ impl Watch for Late {
 
     fn elapsed(&self, state: u32, zone: &mut Matrix, row: usize, _hit: &mut dyn FnMut(u32)) -> (u32, bool) {
         match self.bound(state) {
-            Some(bound) if state & Self::ASKED != 0 && zone.at(0, row) <= below(-bound) => ((state & !3) | Self::PAST, true),
+            Some(bound) if state & Self::ASKED != 0 && zone.at(0, row) <= below(-bound) => {
+                ((state & !3) | Self::PAST, true)
+            }
             _ => (state, true),
         }
     }

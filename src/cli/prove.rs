@@ -1,0 +1,47 @@
+//! `stillgate prove`: all delays in their ranges at once.
+
+use std::process::ExitCode;
+use std::time::Duration;
+
+use super::args::Proving;
+use super::common::{Failure, INTERRUPTED, called, control, finish, folder, load, page, program, say, write};
+use crate::findings::Asked;
+use crate::output::instance::write_instance;
+use crate::output::text::Page;
+use crate::output::{bundle, json, text};
+use crate::proof::{self, Call, Spend};
+
+pub fn run(arguments: &Proving) -> Result<ExitCode, Failure> {
+    let input = &arguments.input;
+    let scenario = load(input)?.scenario;
+    let folder = folder(input, &arguments.folder)?;
+    let (control, bar) = control(input.quiet, "proof");
+    let program = program(&scenario, &control)?;
+    let asked = Asked::of(&scenario);
+    let time = arguments.seconds.map(Duration::from_secs);
+    let spend = Spend { zones: arguments.zones, bytes: arguments.memory << 20, time };
+    let proof = proof::prove(&scenario, &program, &asked, &spend, &control);
+    finish(bar);
+    let files = proof.witness_files();
+    let document = json::prove(&scenario, &asked, &proof, &files);
+    if input.json {
+        say(&document)?;
+    } else if !input.quiet {
+        let (called, into) = (called(input), folder.display().to_string());
+        let page = Page { folder: &into, ..page(called.as_deref(), "") };
+        say(&text::prove(&scenario, &asked, &proof, &files, &page))?;
+    }
+    let mut bundle = bundle::Bundle::default();
+    bundle.add("proof.json", document);
+    for (claim, file) in proof.claims.iter().zip(&files) {
+        if let (Some(witness), Some(file)) = (&claim.witness, file) {
+            bundle.add(file, write_instance(witness, &scenario));
+        }
+    }
+    write(&bundle, &folder, input.quiet || input.json)?;
+    if control.cancelled() {
+        return Ok(ExitCode::from(INTERRUPTED));
+    }
+    let good = proof.claims.iter().all(|claim| claim.call == Call::Proved);
+    Ok(ExitCode::from(u8::from(arguments.strict && !good)))
+}
