@@ -286,7 +286,7 @@ mod tests {
         assert_eq!(between(900.0, 9000.0), [1000.0, 2000.0, 5000.0]);
         assert_eq!(between(900.0, 2_000_000.0), [1e3, 1e4, 1e5, 1e6]);
         assert_eq!(between(0.11, 0.17), [0.12, 0.14, 0.16]);
-        assert_eq!(between(3e-5, 4e-2), [1e-4, 1e-3, 1e-2]);
+        assert_eq!(between(3e-5, 4e-2), [5e-5, 1e-4, 2e-4, 5e-4, 1e-3, 2e-3, 5e-3, 1e-2, 2e-2]);
         assert_eq!(between(0.9991, 1.0), [0.9992, 0.9994, 0.9996, 0.9998, 1.0]);
         assert_eq!(between(2e-9, 0.9).len(), 4, "every second decade");
         for (low, high) in [(1e-9, 1.1e-9), (0.5, 0.5001), (1e3, 4e18), (0.9, 1.3), (1.0, 1.25)] {

@@ -163,7 +163,8 @@ mod tests {
         let legs: Vec<String> = (0..9).map(|n| format!("g{n}↑ 1")).collect();
         assert_eq!(joined(&legs, 200).matches('+').count(), 8);
         let cut = joined(&legs, 40);
-        assert_eq!(cut, "g0↑ 1 + g1↑ 1 + … 6 more + g8↑ 1");
+        assert_eq!(cut, "g0↑ 1 + g1↑ 1 + … 5 more + g7↑ 1 + g8↑ 1");
+        assert_eq!(joined(&legs, 39), "g0↑ 1 + g1↑ 1 + … 6 more + g8↑ 1");
         assert_eq!(joined(&legs, 3), "g0↑ 1 + … 7 more + g8↑ 1", "the ends stay");
     }
 }
