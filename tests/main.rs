@@ -28,6 +28,7 @@ mod outside;
 mod parts;
 mod paths;
 mod per_event;
+mod proofs;
 mod searches;
 mod support;
 mod sweeps_agree;

@@ -49,7 +49,9 @@ impl Joint {
         if self.victims.is_empty() {
             self.victims = (0..info.agents.len()).map(|i| victims(plant, key, info, i)).collect();
         }
-        let harmless = |mask: u64| (0..64).filter(|i| mask >> i & 1 == 1 && self.victims[*i] == 0).fold(0u64, |all, i| all | 1 << i);
+        let harmless = |mask: u64| {
+            (0..64).filter(|i| mask >> i & 1 == 1 && self.victims[*i] == 0).fold(0u64, |all, i| all | 1 << i)
+        };
         let steps = of(|mover| matches!(mover, Mover::Step(_)));
         let skewed = steps != 0 && plant.steps[key.steps()..].iter().any(|step| step.skew > 0);
         // a step that disables nothing goes first; beside one that does all others may matter

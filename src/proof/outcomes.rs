@@ -28,14 +28,13 @@ struct Part {
     apart: Explored,
 }
 
+/// By the state that a window began in, the states that it came to rest in, each with a way.
+type Followed = BTreeMap<Box<[u64]>, BTreeMap<Box<[u64]>, u32>>;
+
 impl Part {
     /// The states at rest of a window, by the state that it began in.
-    fn outcomes(
-        &self,
-        found: &Explored,
-        steps: &std::ops::Range<u32>,
-    ) -> BTreeMap<Box<[u64]>, BTreeMap<Box<[u64]>, u32>> {
-        let mut all: BTreeMap<Box<[u64]>, BTreeMap<Box<[u64]>, u32>> = BTreeMap::new();
+    fn outcomes(&self, found: &Explored, steps: &std::ops::Range<u32>) -> Followed {
+        let mut all: Followed = BTreeMap::new();
         let these = found.rests.iter().filter(|(rest, _)| steps.contains(&rest.steps) && rest.origin != NOWHERE);
         for (rest, node) in these {
             let state = |number: u32| found.states[number as usize].clone();

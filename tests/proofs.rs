@@ -1,0 +1,178 @@
+//! `stillgate prove`: what is refuted replays, what is proved no draw breaks, and what is open says why.
+
+use std::process::Command;
+
+use stillgate::control::Control;
+use stillgate::engine::Program;
+use stillgate::findings::Asked;
+use stillgate::proof::{Call, Proof, Spend, prove};
+use stillgate::reader;
+use stillgate::scenario::Scenario;
+
+fn read(text: &str) -> Scenario {
+    reader::read(text, "t").unwrap_or_else(|faults| panic!("{faults}")).scenario
+}
+
+fn proof(text: &str, zones: u64) -> (Asked, Proof) {
+    let scenario = read(text);
+    let program = Program::new(&scenario, &Control::default()).unwrap();
+    let asked = Asked::of(&scenario);
+    let proof = prove(&scenario, &program, &asked, &Spend { zones, ..Spend::default() }, &Control::default());
+    (asked, proof)
+}
+
+/// The verdict of the first claim of a rule, and whether it is one but for exact ties.
+fn call(text: &str, rule: &str) -> (Call, bool) {
+    let (asked, proof) = proof(text, 50_000);
+    let of = |question: u32| asked.questions[question as usize].rule.word() == rule;
+    let claim =
+        proof.claims.iter().filter(|claim| of(claim.question)).max_by_key(|claim| claim.call.severity()).unwrap();
+    (claim.call, claim.but_for_ties)
+}
+
+fn latch(q: &str, qn: &str) -> String {
+    format!(
+        r#"
+[inputs]
+r = 1
+s = 1
+[gates]
+q = {{ nor = ["r", "qn"], delay = {q} }}
+qn = {{ nor = ["s", "q"], delay = {qn} }}
+[[steps]]
+set = {{ r = 0, s = 0 }}
+"#
+    )
+}
+
+/// Overlapping ranges race, disjoint ones do not, touching ones only by an exact tie; the oscillation needs exact equality.
+#[test]
+fn a_latch_released_at_once() {
+    assert_eq!(call(&latch("[4, 8]", "[5, 9]"), "critical_race"), (Call::Refuted, false));
+    let (endless, ties) = call(&latch("[4, 8]", "[5, 9]"), "oscillation");
+    assert!(endless != Call::Proved && ties, "{endless:?} {ties}");
+    assert_eq!(call(&latch("[4, 6]", "[7, 9]"), "critical_race"), (Call::Proved, false));
+    assert_eq!(call(&latch("[4, 6]", "[7, 9]"), "oscillation"), (Call::Proved, false));
+    let (touching, ties) = call(&latch("[4, 6]", "[6, 9]"), "critical_race");
+    assert!(touching != Call::Proved && ties, "{touching:?} {ties}");
+}
+
+/// A buffer chain: the settling bound is the sum of the greatest delays, to the femtosecond, whatever rule asks for it.
+#[test]
+fn the_longest_path_is_the_bound() {
+    let chain = |within: &str| {
+        format!(
+            r#"
+[inputs]
+a = 0
+[gates]
+b = {{ buf = ["a"], delay = [2, 5] }}
+c = {{ buf = ["b"], delay = [3, 7.000001] }}
+[rules]
+settle_within = {within}
+[[steps]]
+set = {{ a = 1 }}
+"#
+        )
+    };
+    assert_eq!(call(&chain("12.000001"), "settle_within").0, Call::Proved);
+    assert_ne!(call(&chain("12"), "settle_within").0, Call::Proved);
+    let (_, proof) = proof(&chain("20"), 1000);
+    let (least, most) = proof.windows[0].settling.unwrap();
+    assert_eq!((least.fs(), most.fs()), (5_000_000, 12_000_001));
+}
+
+/// Rules with lengths hold at their bounds and not a femtosecond beyond: two edges of one input, a high between them, the time between two nets.
+#[test]
+fn lengths_at_their_bounds() {
+    let pulse = |rules: &str| {
+        format!(
+            r#"
+[inputs]
+a = 0
+[gates]
+y = {{ buf = ["a"], rise = [2, 4], fall = [3, 6] }}
+z = {{ not = ["a"], delay = [5, 8] }}
+[rules]
+{rules}
+[[steps]]
+at = 10
+set = {{ a = 1 }}
+[[steps]]
+after = 20
+set = {{ a = 0 }}
+[[steps]]
+after = 40
+set = {{ a = 1 }}
+"#
+        )
+    };
+    // high: 20 - rise + fall, from 19 to 24; low: 40 - fall + rise, from 36 to 41
+    let high = |ns: &str| call(&pulse(&format!("min_pulse = {{ y = {{ high = {ns} }} }}")), "min_pulse").0;
+    assert_eq!(high("19"), Call::Proved);
+    assert_ne!(high("19.000001"), Call::Proved);
+    let low = |ns: &str| call(&pulse(&format!("min_pulse = {{ y = {{ low = {ns} }} }}")), "min_pulse").0;
+    assert_eq!(low("36"), Call::Proved);
+    assert_ne!(low("36.000001"), Call::Proved);
+    // y rises 1 to 6 before z falls
+    let timing = |bound: &str| {
+        let rule = format!("[[rules.timing]]\nfrom = \"y rise\"\nto = \"z fall\"\n{bound}");
+        call(&pulse(&rule), "timing").0
+    };
+    assert_eq!(timing("min = 1"), Call::Proved);
+    assert_ne!(timing("min = 1.000001"), Call::Proved);
+    assert_eq!(timing("max = 6"), Call::Proved);
+    assert_ne!(timing("max = 5.999999"), Call::Proved);
+    // both high, or both low, for as long
+    let never = |longer: &str| {
+        let rule = format!("[[rules.never]]\nstate = {{ y = 1, z = 1 }}\nlonger_than = {longer}");
+        call(&pulse(&rule), "never").0
+    };
+    assert_eq!(never("6"), Call::Proved);
+    assert_ne!(never("5.999999"), Call::Proved);
+}
+
+/// What the method does not cover, and what a budget ends, is never counted as proved.
+#[test]
+fn what_is_left_open_says_why() {
+    let text = latch("[4, 8]", "[5, 9]").replace("delay = [5, 9]", "delay = [5, 9], filter = \"transport\"");
+    let (_, open) = proof(&text, 1000);
+    assert!(!open.claims.is_empty());
+    for claim in &open.claims {
+        assert_eq!(claim.call, Call::NotCovered);
+        assert!(claim.reason.as_ref().unwrap().contains("qn is none"), "{claim:?}");
+    }
+    let (_, short) = proof(include_str!("../scenarios/interlock.toml"), 3);
+    assert!(short.claims.iter().all(|claim| claim.call == Call::Undecided), "{:?}", short.claims);
+    assert!(short.claims.iter().all(|claim| claim.reason.as_ref().unwrap().contains("zones ran out")));
+}
+
+/// The command writes a case for what is refuted, and the case shows it when it is run as the text says.
+#[test]
+fn refuted_cases_replay() {
+    let folder = tempfile::tempdir().unwrap();
+    let run = |arguments: &[&str]| {
+        let done = Command::new(env!("CARGO_BIN_EXE_stillgate")).args(arguments).output().unwrap();
+        (done.status.code(), String::from_utf8(done.stdout).unwrap())
+    };
+    let scenario = concat!(env!("CARGO_MANIFEST_DIR"), "/scenarios/selector.toml");
+    let out = folder.path().join("proof");
+    let out = out.to_str().unwrap();
+    let (code, text) = run(&["prove", scenario, "--out", out, "--strict"]);
+    assert_eq!(code, Some(1), "{text}");
+    assert!(text.contains("9 proved, 1 refuted, 0 undecided, 0 not covered"), "{text}");
+    let line = text.lines().find(|line| line.contains("stillgate run")).unwrap();
+    let words: Vec<&str> = line.split_whitespace().skip(1).collect();
+    let again = folder.path().join("run");
+    let (code, shown) = run(&[&words[..], &["--out", again.to_str().unwrap()]].concat());
+    assert_eq!(code, Some(0));
+    assert!(shown.contains("glitch"), "{shown}");
+
+    let (code, json) = run(&["prove", scenario, "--out", out, "--json"]);
+    assert_eq!(code, Some(0));
+    let json: serde_json::Value = serde_json::from_str(&json).unwrap();
+    assert_eq!(json["format"], 1);
+    let refuted = json["claims"].as_array().unwrap().iter().filter(|claim| claim["verdict"] == "refuted");
+    assert_eq!(refuted.map(|claim| claim["witness"].as_str().unwrap()).collect::<Vec<_>>(), ["refuted-1.toml"]);
+    assert_eq!(json["windows"][0]["settling"][1], 23);
+}
