@@ -12,7 +12,7 @@ use super::key::{Agent, Info, Key, Mover, bit, excited, put};
 use super::plant::Plant;
 
 /// Movers of one set, at most.
-const TOGETHER: u32 = 6;
+const TOGETHER: u32 = 8;
 /// Sets looked at for one key, at most.
 const SETS: usize = 20_000;
 

@@ -3,6 +3,7 @@
 mod claim;
 mod cycles;
 mod explore;
+mod goals;
 mod joint;
 mod key;
 mod oscillations;

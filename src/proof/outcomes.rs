@@ -4,8 +4,9 @@ use std::collections::{BTreeMap, BTreeSet};
 
 use super::claim::{Call, Variation};
 use super::explore::{Explored, Mode, NOWHERE, Rest};
+use super::goals::Goal;
 use super::key::bit;
-use super::prove::{Prover, Unsaid, World};
+use super::prove::{Prover, Unsaid, World, reached};
 use super::watch::Nothing;
 use super::watches::BeforeRest;
 use crate::circuit::NetId;
@@ -209,10 +210,10 @@ impl Prover<'_> {
                 self.claim(*question, Call::Proved);
             } else if without.is_empty() {
                 let ways: Vec<(u32, bool)> = with.iter().map(|(node, _)| (*node, true)).collect();
-                self.refute(&world, &found, &ways, *question);
+                self.refute(&world, &found, &ways, *question, &Goal::Reached);
             } else {
                 let ways: Vec<(u32, bool)> = without.iter().map(|(node, _)| (*node, false)).collect();
-                self.refute(&world, &apart, &ways, *question);
+                self.refute(&world, &apart, &ways, *question, &Goal::Reached);
             }
         }
         Ok(())
@@ -225,7 +226,7 @@ impl Prover<'_> {
             let world = self.world(&nets, &[])?;
             let from = self.proof.claims.len();
             let early = |_: &Question, steps: std::ops::Range<u32>, hit: u32| steps.start == hit;
-            self.by_window(&world, &BeforeRest, questions, &early)?;
+            self.by_window(&world, &BeforeRest, questions, &early, &reached)?;
             for claim in self.proof.claims.drain(from..) {
                 let question = claim.question;
                 let graver = worst.get(&question).is_none_or(|it| it.call.severity() < claim.call.severity());

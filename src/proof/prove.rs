@@ -11,9 +11,10 @@ use std::time::{Duration, Instant};
 use super::claim::{Call, Claim, Proof, Variation, WindowProof};
 use super::cycles::{RestVerdict, comes_to_rest};
 use super::explore::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, explore};
+use super::goals::Goal;
 use super::key::bit;
 use super::plant::Plant;
-use super::system::{Points, System};
+use super::system::{Points, Sense, System};
 use super::watch::{Nothing, Watch};
 use super::watches::{Answered, Apart, Edge, Late, Moves, Settles, Shows, ShowsLonger, Swallows, Width};
 use super::witness::{case, one_draw};
@@ -21,7 +22,7 @@ use crate::circuit::{Circuit, NetId};
 use crate::control::Control;
 use crate::engine::{Program, Trace};
 use crate::findings::{Answers, Asked, Judge, Pattern, Question, RuleKey};
-use crate::instance::Instance;
+use crate::instance::{Instance, Which};
 use crate::logic::{Bits, State};
 use crate::scenario::{Alternative, Scenario};
 use crate::time::Span;
@@ -30,6 +31,14 @@ use crate::time::Span;
 const RANDOM_GATES: usize = 12;
 /// States listed of one window, at most.
 const STATES: usize = 4096;
+
+/// Traces that are made into cases for one claim, at most.
+const WAYS: usize = 16;
+
+/// Nothing has to be shown but that the trace ends where it does.
+pub(super) fn reached(_: &Plant, _: &Question) -> Goal {
+    Goal::Reached
+}
 
 /// What a proof may spend.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -88,7 +97,7 @@ enum Looked {
     /// It cannot happen.
     Never,
     /// It can: hits, each with its way.
-    Hits { found: Box<Explored>, hits: BTreeMap<u32, u32>, ties: BTreeMap<u32, bool> },
+    Hits { found: Box<Explored>, hits: BTreeMap<u32, u32>, ties: BTreeMap<u32, bool>, short: Option<Unsaid> },
 }
 
 impl<'a> Prover<'a> {
@@ -114,13 +123,21 @@ impl<'a> Prover<'a> {
         Ok(World { plant, starts })
     }
 
+    /// Explores to the end.
     pub(super) fn explore<W: Watch>(&mut self, world: &World, watch: &W, mode: Mode) -> Result<Explored, Unsaid> {
+        let (found, short) = self.explore_some(world, watch, mode);
+        short.map_or(Ok(found), Err)
+    }
+
+    /// Explores as far as the budget goes, and says why no farther.
+    fn explore_some<W: Watch>(&mut self, world: &World, watch: &W, mode: Mode) -> (Explored, Option<Unsaid>) {
         let found = explore(&world.plant, &world.starts, watch, mode, &self.budget);
         self.proof.zones += found.zones;
-        match found.ended {
-            Ended::Complete | Ended::Hit => Ok(found),
-            ended => Err(Unsaid { call: Call::Undecided, reason: self.why(ended) }),
-        }
+        let short = match found.ended {
+            Ended::Complete | Ended::Hit => None,
+            ended => Some(Unsaid { call: Call::Undecided, reason: self.why(ended) }),
+        };
+        (found, short)
     }
 
     pub(super) fn why(&self, ended: Ended) -> String {
@@ -143,23 +160,25 @@ impl<'a> Prover<'a> {
         {
             return Ok(Looked::Never);
         }
-        let exact = self.explore(world, watch, Mode::default())?;
+        // what was found before a budget ran out was found
+        let (exact, short) = self.explore_some(world, watch, Mode::default());
         let hits: BTreeMap<u32, u32> =
             exact.hits.iter().filter(|(hit, _)| wanted(**hit)).map(|(h, n)| (*h, *n)).collect();
         if hits.is_empty() {
-            return Ok(Looked::Never);
+            return short.map_or(Ok(Looked::Never), Err);
         }
-        let apart = self.explore(world, watch, Mode { joint: false, ..Mode::default() })?;
-        let ties: BTreeMap<u32, bool> = hits.keys().map(|hit| (*hit, !apart.hits.contains_key(hit))).collect();
+        let (apart, apart_short) = self.explore_some(world, watch, Mode { joint: false, ..Mode::default() });
+        let needs_tie = |hit: &u32| !apart.hits.contains_key(hit) && apart_short.is_none();
+        let ties: BTreeMap<u32, bool> = hits.keys().map(|hit| (*hit, needs_tie(hit))).collect();
         // a way without exact ties is the better one
-        let (found, hits) = match ties.values().all(|tie| !tie) {
+        let (found, hits) = match hits.keys().all(|hit| apart.hits.contains_key(hit)) {
             true => {
                 let hits = hits.keys().map(|hit| (*hit, apart.hits[hit])).collect();
                 (apart, hits)
             }
             false => (exact, hits),
         };
-        Ok(Looked::Hits { found: Box::new(found), hits, ties })
+        Ok(Looked::Hits { found: Box::new(found), hits, ties, short })
     }
 
     pub(super) fn claim(&mut self, question: u32, call: Call) -> &mut Claim {
@@ -199,10 +218,11 @@ impl<'a> Prover<'a> {
                 let world = self.world(&nets, &[never.longer_than])?;
                 let pattern = local(&world.plant, &never.state);
                 if never.longer_than == Span::ZERO {
-                    self.whole_run(&world, &Shows { pattern }, questions[0])
+                    self.whole_run(&world, &Shows { pattern }, &Goal::Reached, questions[0])
                 } else {
                     let longer = world.plant.ticks(never.longer_than);
-                    self.whole_run(&world, &ShowsLonger { pattern, longer }, questions[0])
+                    let goal = Goal::Long { pattern: pattern.clone(), longer };
+                    self.whole_run(&world, &ShowsLonger { pattern, longer }, &goal, questions[0])
                 }
             }
             RuleKey::Timing => {
@@ -221,13 +241,15 @@ impl<'a> Prover<'a> {
                 });
                 let must = !self.scenario.circuit.is_input(timing.to.net);
                 let max = timing.max.map(|max| Answered { from, to, max: world.plant.ticks(max), must });
+                let close = Goal::Close { from, to, min: min.map_or(0, |min| min.min) };
+                let open = Goal::Open { from, to, max: max.map_or(0, |max| max.max) };
                 match (min, max) {
-                    (Some(min), None) => self.whole_run(&world, &min, questions[0]),
-                    (None, Some(max)) => self.whole_run(&world, &max, questions[0]),
+                    (Some(min), None) => self.whole_run(&world, &min, &close, questions[0]),
+                    (None, Some(max)) => self.whole_run(&world, &max, &open, questions[0]),
                     (Some(min), Some(max)) => {
-                        self.whole_run(&world, &min, questions[0])?;
+                        self.whole_run(&world, &min, &close, questions[0])?;
                         let first = self.proof.claims.pop();
-                        self.whole_run(&world, &max, questions[0])?;
+                        self.whole_run(&world, &max, &open, questions[0])?;
                         // the worse of both answers for the rule
                         if let Some(first) = first
                             && self
@@ -253,7 +275,7 @@ impl<'a> Prover<'a> {
                 let ticks = |span: Option<Span>| span.map_or(0, |span| world.plant.ticks(span));
                 let net = world.plant.local(rule.net).expect("the cone holds its nets");
                 let watch = Width { net, least: [ticks(rule.low), ticks(rule.high)] };
-                self.whole_run(&world, &watch, questions[0])
+                self.whole_run(&world, &watch, &Goal::Short { net, least: watch.least }, questions[0])
             }
             RuleKey::Swallowed => {
                 let nets: Vec<NetId> = match net {
@@ -264,7 +286,7 @@ impl<'a> Prover<'a> {
                     let world = self.world(&[net], &[])?;
                     let net = world.plant.local(net).expect("the cone holds its nets");
                     let Some(gate) = (net as usize).checked_sub(world.plant.inputs) else { continue };
-                    self.whole_run(&world, &Swallows { gate: gate as u32 }, questions[0])?;
+                    self.whole_run(&world, &Swallows { gate: gate as u32 }, &Goal::Reached, questions[0])?;
                     if self.proof.claims.last().is_some_and(|claim| claim.call != Call::Proved) {
                         return Ok(());
                     }
@@ -313,26 +335,27 @@ impl<'a> Prover<'a> {
     }
 
     /// A question about whole runs: any hit breaks it.
-    fn whole_run<W: Watch>(&mut self, world: &World, watch: &W, question: u32) -> Result<(), Unsaid> {
+    fn whole_run<W: Watch>(&mut self, world: &World, watch: &W, goal: &Goal, question: u32) -> Result<(), Unsaid> {
         match self.look(world, watch, &|_| true)? {
             Looked::Never => {
                 self.claim(question, Call::Proved);
             }
-            Looked::Hits { found, hits, ties } => {
+            Looked::Hits { found, hits, ties, .. } => {
                 let ways: Vec<(u32, bool)> = hits.iter().map(|(hit, node)| (*node, ties[hit])).collect();
-                self.refute(world, &found, &ways, question);
+                self.refute(world, &found, &ways, question, goal);
             }
         }
         Ok(())
     }
 
-    /// Questions about windows: hits of each say whether they break it.
+    /// Questions about windows: hits of each say whether they break it, and what a case must show then.
     pub(super) fn by_window<W: Watch>(
         &mut self,
         world: &World,
         watch: &W,
         questions: &[u32],
         breaks: &dyn Fn(&Question, std::ops::Range<u32>, u32) -> bool,
+        goal: &dyn Fn(&Plant, &Question) -> Goal,
     ) -> Result<(), Unsaid> {
         let ranges: Vec<(u32, std::ops::Range<u32>)> =
             questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
@@ -345,7 +368,7 @@ impl<'a> Prover<'a> {
                     self.claim(*question, Call::Proved);
                 }
             }
-            Looked::Hits { found, hits, ties } => {
+            Looked::Hits { found, hits, ties, short } => {
                 for (question, steps) in &ranges {
                     let ask = &asked.questions[*question as usize];
                     let of: Vec<(u32, bool)> = hits
@@ -354,10 +377,13 @@ impl<'a> Prover<'a> {
                         .map(|(hit, node)| (*node, ties[hit]))
                         .collect();
                     match of.is_empty() {
-                        true => {
-                            self.claim(*question, Call::Proved);
-                        }
-                        false => self.refute(world, &found, &of, *question),
+                        true => match &short {
+                            Some(unsaid) => self.unsaid(&[*question], unsaid),
+                            None => {
+                                self.claim(*question, Call::Proved);
+                            }
+                        },
+                        false => self.refute(world, &found, &of, *question, &goal(&world.plant, ask)),
                     }
                 }
             }
@@ -386,7 +412,7 @@ impl<'a> Prover<'a> {
             let moved = Moves::moved(hit);
             steps.contains(&moved.steps) && moved.count >= 2
         };
-        self.by_window(&world, &watch, questions, &glitch)?;
+        self.by_window(&world, &watch, questions, &glitch, &reached)?;
         if rule.shorter_than > Span::ZERO {
             for claim in &mut self.proof.claims[from..] {
                 if claim.call == Call::Undecided {
@@ -418,7 +444,7 @@ impl<'a> Prover<'a> {
                 let moved = Moves::moved(hit);
                 steps.contains(&moved.steps) && !(count.least..=count.most).contains(&moved.count)
             };
-            if let Err(unsaid) = self.by_window(&world, &watch, &[*question], &wrong) {
+            if let Err(unsaid) = self.by_window(&world, &watch, &[*question], &wrong, &reached) {
                 self.unsaid(&[*question], &unsaid);
             }
         }
@@ -435,7 +461,12 @@ impl<'a> Prover<'a> {
                 self.asked.questions[*question as usize].bound.map(|bound| world.plant.ticks(bound));
         }
         let watch = Late { net: world.plant.local(net).expect("the cone holds its nets"), bounds };
-        self.by_window(&world, &watch, questions, &|_, steps, hit| steps.start == hit)
+        let late = watch.net;
+        let goal = move |plant: &Plant, question: &Question| Goal::Late {
+            net: late,
+            bound: question.bound.map_or(0, |bound| plant.ticks(bound)),
+        };
+        self.by_window(&world, &watch, questions, &|_, steps, hit| steps.start == hit, &goal)
     }
 
     /// Questions about where nets rest. `good` says whether values (with the origin of the window) are allowed.
@@ -466,20 +497,26 @@ impl<'a> Prover<'a> {
             }
             return Ok(());
         }
-        let exact = self.explore(&world, &Nothing, Mode::default())?;
-        let apart = self.explore(&world, &Nothing, Mode { joint: false, ..Mode::default() })?;
+        let (exact, short) = self.explore_some(&world, &Nothing, Mode::default());
+        let (apart, apart_short) = self.explore_some(&world, &Nothing, Mode { joint: false, ..Mode::default() });
         let values =
             |found: &Explored, rest: super::explore::Rest| (rest.steps, found.states[rest.state as usize].clone());
         for (question, steps) in &ranges {
             let all = bad(&exact, steps);
             if all.is_empty() {
-                self.claim(*question, Call::Proved);
+                match &short {
+                    Some(unsaid) => self.unsaid(&[*question], unsaid),
+                    None => {
+                        self.claim(*question, Call::Proved);
+                    }
+                }
                 continue;
             }
             let without = bad(&apart, steps);
             if without.is_empty() {
-                let ways: Vec<(u32, bool)> = all.iter().map(|(node, _)| (*node, true)).collect();
-                self.refute(&world, &exact, &ways, *question);
+                let tie = apart_short.is_none();
+                let ways: Vec<(u32, bool)> = all.iter().map(|(node, _)| (*node, tie)).collect();
+                self.refute(&world, &exact, &ways, *question, &Goal::Reached);
             } else {
                 let mut seen = Vec::new();
                 let ways = without.iter().filter(|(_, rest)| {
@@ -488,47 +525,68 @@ impl<'a> Prover<'a> {
                     new
                 });
                 let ways: Vec<(u32, bool)> = ways.map(|(node, _)| (*node, false)).collect();
-                self.refute(&world, &apart, &ways, *question);
+                self.refute(&world, &apart, &ways, *question, &Goal::Reached);
             }
         }
         Ok(())
     }
 
     /// Traces break a question: makes one of them a case, runs it, and says what came of it.
-    pub(super) fn refute(&mut self, world: &World, found: &Explored, ways: &[(u32, bool)], question: u32) {
+    pub(super) fn refute(&mut self, world: &World, found: &Explored, ways: &[(u32, bool)], question: u32, goal: &Goal) {
         let but_for_ties = ways.iter().all(|(_, tie)| *tie);
         let mut witness = None;
-        let mut reason = None;
-        for (node, _) in ways.iter().take(16) {
+        let mut reason = "delays were found, but their run does not show it";
+        for (node, _) in ways.iter().take(WAYS) {
             let (trace, start) = (found.trace(*node), found.start(*node));
-            match self.case_of(world, &trace, &start) {
-                Ok(instance) if self.shows(&instance, question) => {
-                    witness = Some(Box::new(instance));
-                    break;
-                }
-                Ok(_) => reason = Some("delays were found, but their run does not show it".to_string()),
-                Err(why) => {
-                    reason.get_or_insert(why.to_string());
-                }
+            match self.cases_of(world, &trace, &start, goal) {
+                Ok(cases) => witness = cases.into_iter().find(|case| self.shows(case, question)),
+                Err(why) => reason = why,
+            }
+            if witness.is_some() {
+                break;
             }
         }
+        // the usual cases lie in the ranges, too
+        let usual = [Which::Typ, Which::Min, Which::Max].map(|which| Instance::of(self.scenario, &which));
+        let witness = witness.or_else(|| usual.into_iter().find(|case| self.shows(case, question)));
         let refuted = witness.is_some();
         let claim = self.claim(question, if refuted { Call::Refuted } else { Call::Undecided });
         claim.but_for_ties = but_for_ties;
         claim.variation = Some(if refuted { Variation::Constant } else { Variation::Unknown });
-        claim.witness = witness;
-        claim.reason = if refuted { None } else { reason };
+        claim.witness = witness.map(Box::new);
+        claim.reason = (!refuted).then(|| reason.to_string());
+    }
+
+    /// Cases that go the way of a trace to a goal, one for each way to reach it, or why there is none.
+    fn cases_of(
+        &self,
+        world: &World,
+        trace: &[Fired],
+        start: &[u64],
+        goal: &Goal,
+    ) -> Result<Vec<Instance>, &'static str> {
+        let shared = one_draw(self.scenario, &world.plant);
+        let system = System::of(&world.plant, start, trace, &shared);
+        let mut cases = Vec::new();
+        let mut why = "what was found has no length that could be looked for";
+        for forms in goal.ways(&world.plant, &system, start, trace) {
+            let mut system = system.clone();
+            forms.into_iter().for_each(|form| system.push(form, Sense::Below));
+            match system.solve() {
+                Points::Some(point) => {
+                    cases.push(case(self.scenario, &world.plant, &system, &point, trace, start).instance);
+                }
+                Points::None => why = "no constant delays were found that show it",
+                Points::GaveUp => why = "the numbers of the linear program grew too large",
+            }
+        }
+        if cases.is_empty() { Err(why) } else { Ok(cases) }
     }
 
     /// A case that goes the way of a trace, or why there is none.
     pub(super) fn case_of(&self, world: &World, trace: &[Fired], start: &[u64]) -> Result<Instance, &'static str> {
-        let shared = one_draw(self.scenario, &world.plant);
-        let system = System::of(&world.plant, start, trace, &shared);
-        match system.solve() {
-            Points::Some(point) => Ok(case(self.scenario, &world.plant, &system, &point, trace, start).instance),
-            Points::None => Err("no constant delays were found that show it"),
-            Points::GaveUp => Err("the numbers of the linear program grew too large"),
-        }
+        let cases = self.cases_of(world, trace, start, &Goal::Reached)?;
+        cases.into_iter().next().ok_or("no case was found")
     }
 
     /// Everything that happens in the run of a case; `None` if it was stopped.

@@ -49,6 +49,12 @@ impl Form {
         }
     }
 
+    /// This and a constant.
+    pub fn with(mut self, constant: i64) -> Form {
+        self.constant += constant;
+        self
+    }
+
     /// This less another.
     pub fn minus(&self, other: &Form) -> Form {
         let mut difference = self.clone();
