@@ -11,7 +11,7 @@ use stillgate::proof::{
 use stillgate::reader;
 use stillgate::scenario::Scenario;
 
-fn read(text: &str) -> Scenario {
+pub fn read(text: &str) -> Scenario {
     reader::read(text, "t").unwrap_or_else(|faults| panic!("{faults}")).scenario
 }
 
@@ -84,8 +84,9 @@ impl World {
 const WITHOUT_TIES: Mode =
     Mode { joint: false, merge: stillgate::proof::Merge::Inclusion, edges: false, first_hit: false };
 
-fn latch(q: &str, qn: &str) -> World {
-    World::of(&format!(
+/// A NOR latch of these delays, both inputs let go at once.
+pub fn latch_text(q: &str, qn: &str) -> String {
+    format!(
         r#"
 [inputs]
 r = 1
@@ -96,7 +97,11 @@ qn = {{ nor = ["s", "q"], delay = {qn} }}
 [[steps]]
 set = {{ r = 0, s = 0 }}
 "#
-    ))
+    )
+}
+
+fn latch(q: &str, qn: &str) -> World {
+    World::of(&latch_text(q, qn))
 }
 
 #[test]

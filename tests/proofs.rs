@@ -2,16 +2,12 @@
 
 use std::process::Command;
 
+use crate::bounded::{latch_text as latch, read};
+
 use stillgate::control::Control;
 use stillgate::engine::Program;
 use stillgate::findings::Asked;
 use stillgate::proof::{Call, Proof, Spend, prove};
-use stillgate::reader;
-use stillgate::scenario::Scenario;
-
-fn read(text: &str) -> Scenario {
-    reader::read(text, "t").unwrap_or_else(|faults| panic!("{faults}")).scenario
-}
 
 fn proof(text: &str, zones: u64) -> (Asked, Proof) {
     let scenario = read(text);
@@ -28,21 +24,6 @@ fn call(text: &str, rule: &str) -> (Call, bool) {
     let claim =
         proof.claims.iter().filter(|claim| of(claim.question)).max_by_key(|claim| claim.call.severity()).unwrap();
     (claim.call, claim.but_for_ties)
-}
-
-fn latch(q: &str, qn: &str) -> String {
-    format!(
-        r#"
-[inputs]
-r = 1
-s = 1
-[gates]
-q = {{ nor = ["r", "qn"], delay = {q} }}
-qn = {{ nor = ["s", "q"], delay = {qn} }}
-[[steps]]
-set = {{ r = 0, s = 0 }}
-"#
-    )
 }
 
 /// Overlapping ranges race, disjoint ones do not, touching ones only by an exact tie; the oscillation needs exact equality.
@@ -156,6 +137,24 @@ fn what_is_found_before_the_budget_ends_was_found() {
     assert!(expected.contains(&Call::Refuted), "{expected:?}");
     assert!(expected.contains(&Call::Undecided), "{expected:?}");
     assert!(!expected.contains(&Call::Proved), "{expected:?}");
+}
+
+/// A glitch belongs to the window of its step, also where the next step comes at the same instant, or changes nothing here.
+#[test]
+fn windows_go_on_past_steps_that_begin_none() {
+    let selector = include_str!("../scenarios/selector.toml");
+    let head = selector.split("[[steps]]").next().unwrap();
+    for place in ["after = 0", "after = 3"] {
+        let first = "[[steps]]\nat = 50\nset = { choose_upper = 0 }\n";
+        let second = format!("[[steps]]\n{place}\nset = {{ gauge_upper = 1 }}\n");
+        let (asked, proof) = proof(&format!("{head}{first}{second}"), 20_000);
+        let first = |claim: &&stillgate::proof::Claim| {
+            let question = &asked.questions[claim.question as usize];
+            question.rule.word() == "glitch_free" && question.moment == Some(0)
+        };
+        let call = proof.claims.iter().find(first).unwrap().call;
+        assert_ne!(call, Call::Proved, "{place}");
+    }
 }
 
 /// The command writes a case for what is refuted, and the case shows it when it is run as the text says.

@@ -4,7 +4,8 @@
 //! cycle there is only a suspicion: the way back may lead into a part of the zone from which it does not lead back again.
 //! It is settled by a second exploration that joins equal zones only: what is reached again is then the very same set.
 
-use super::explore::{Budget, Ended, Explored, Fired, Merge, Mode, explore};
+use super::explore::explore;
+use super::explored::{Budget, Ended, Explored, Fired, Merge, Mode};
 use super::key::bit;
 use super::plant::Plant;
 use super::watch::Nothing;

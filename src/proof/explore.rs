@@ -9,223 +9,18 @@ use std::time::Instant;
 
 use rustc_hash::FxHashMap;
 
+use super::explored::{Budget, Ended, Explored, Merge, Mode, NOWHERE, Node, Rest};
 use super::joint::Joint;
 use super::key::{self, Agent, Info, Key, KeyMut, Layout, Mover, Slot, bit, put};
 use super::plant::{Plant, PlantPlace};
+use super::semantics::{Exact, Semantics};
 use super::watch::{Arrival, Block, Fate, Watch};
 use super::zone::{self, Matrix};
-use crate::control::Control;
 
 /// Joins of one zone until what still grows is given up.
 const JOINS: u32 = 32;
 /// Zones looked at, for each that may be kept: those that are joined are looked at again.
 const EXPANDED: u64 = 8;
-
-/// The origin of a window that did not begin at rest, or of none.
-pub const NOWHERE: u32 = u32::MAX;
-
-/// What is done with a zone whose key is known.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
-pub enum Merge {
-    /// Dropped if it lies in one that is known: exact.
-    #[default]
-    Inclusion,
-    /// Joined to the one zone of the key: holds all that can happen, and perhaps more.
-    Hull,
-    /// Dropped only if it is known: exact, and every cycle is a real one.
-    Equality,
-}
-
-/// How an exploration goes.
-#[derive(Clone, Copy, Debug)]
-pub struct Mode {
-    /// What is done with a zone whose key is known.
-    pub merge: Merge,
-    /// May things due at one instant fire together? Without, what needs exactly equal times is left out.
-    pub joint: bool,
-    /// Keep which zone leads to which.
-    pub edges: bool,
-    /// End at the first hit of the watch.
-    pub first_hit: bool,
-}
-
-impl Default for Mode {
-    fn default() -> Mode {
-        Mode { merge: Merge::Inclusion, joint: true, edges: false, first_hit: false }
-    }
-}
-
-/// What an exploration may spend.
-#[derive(Clone, Debug)]
-pub struct Budget {
-    /// Zones kept, at most.
-    pub zones: u64,
-    /// Bytes of zones and keys, at most.
-    pub bytes: u64,
-    /// When it ends at the latest.
-    pub until: Option<Instant>,
-    /// Stops it.
-    pub control: Control,
-}
-
-/// Why an exploration did not come to its end.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum Ended {
-    /// It did.
-    Complete,
-    /// The watch has its hit.
-    Hit,
-    /// As many zones as it may keep.
-    Zones,
-    /// As much memory as it may take.
-    Bytes,
-    /// As long as it may take.
-    Seconds,
-    /// More things at one instant than are tried together, or than fit a word.
-    Together,
-    /// More changes under way on one wire than are kept.
-    InFlight,
-    /// The caller asked to stop.
-    Cancelled,
-}
-
-/// One zone that was kept, and how it was come by.
-#[derive(Clone, Debug)]
-struct Node {
-    key: u32,
-    at: usize,
-    parent: u32,
-    /// What fired, as a range of `fired`.
-    fired: (u32, u32),
-    gone: bool,
-}
-
-/// A state at rest, and the first node that led to it.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
-pub struct Rest {
-    /// Steps taken.
-    pub steps: u32,
-    /// The state at rest in which its window began (with the last step that changed an input here), by number; [`NOWHERE`]
-    /// if it did not begin at rest.
-    pub origin: u32,
-    /// Itself, by number.
-    pub state: u32,
-}
-
-/// One block of a trace.
-#[derive(Clone, Debug, PartialEq, Eq)]
-pub struct Fired {
-    /// What fired together; empty for a step that waited for rest.
-    pub movers: Vec<Mover>,
-    /// The values of all signals after it.
-    pub values: Vec<u64>,
-    /// Steps taken after it.
-    pub steps: usize,
-}
-
-/// What an exploration found.
-pub struct Explored {
-    /// Why it ended.
-    pub ended: Ended,
-    /// Zones that were kept.
-    pub zones: u64,
-    /// Bytes of zones and keys.
-    pub bytes: u64,
-    /// States at rest, each with the node that led to it first.
-    pub rests: BTreeMap<Rest, u32>,
-    /// The states that numbers stand for: values of all signals.
-    pub states: Vec<Box<[u64]>>,
-    /// Hits of the watch, each with the node that led to it first.
-    pub hits: BTreeMap<u32, u32>,
-    /// Which node leads to which, where that was asked for; one that lies in a later one leads to that.
-    pub edges: Vec<(u32, u32)>,
-    /// Did a step that changes an input here come before rest, by number of the step?
-    pub cut: Vec<bool>,
-    nodes: Vec<Node>,
-    movers: Vec<Mover>,
-    keys: Vec<u64>,
-    layout: Layout,
-}
-
-impl Explored {
-    fn key(&self, number: u32) -> Key<'_> {
-        let at = number as usize * self.layout.len;
-        Key { words: &self.keys[at..at + self.layout.len], layout: self.layout }
-    }
-
-    /// The blocks that led to a node, first first.
-    pub fn trace(&self, node: u32) -> Vec<Fired> {
-        let mut blocks = Vec::new();
-        let mut at = node;
-        while self.nodes[at as usize].parent != u32::MAX {
-            let it = &self.nodes[at as usize];
-            let key = self.key(it.key);
-            let movers = self.movers[it.fired.0 as usize..it.fired.1 as usize].to_vec();
-            blocks.push(Fired { movers, values: key.values().to_vec(), steps: key.steps() });
-            at = it.parent;
-        }
-        blocks.reverse();
-        blocks
-    }
-
-    /// How many nodes there are.
-    pub(super) fn nodes(&self) -> usize {
-        self.nodes.len()
-    }
-
-    /// The values of all signals at a node.
-    pub(super) fn values(&self, node: u32) -> Vec<u64> {
-        self.key(self.nodes[node as usize].key).values().to_vec()
-    }
-
-    /// Steps taken at a node.
-    pub(super) fn steps(&self, node: u32) -> usize {
-        self.key(self.nodes[node as usize].key).steps()
-    }
-
-    /// The values of the signals where a trace begins.
-    pub fn start(&self, node: u32) -> Vec<u64> {
-        let mut at = node;
-        while self.nodes[at as usize].parent != u32::MAX {
-            at = self.nodes[at as usize].parent;
-        }
-        self.key(self.nodes[at as usize].key).values().to_vec()
-    }
-}
-
-/// The rules on which an exploration rests. [`Exact`] has them as they must be; others are of use to show that tests would
-/// notice if one of them were wrong.
-pub trait Semantics {
-    /// From when on something with this least delay may fire.
-    fn due(&self, min: i64) -> i64 {
-        min
-    }
-    /// How old the event of a gate with this greatest delay may be when it is cancelled: at its deadline it would have
-    /// fired in this very batch.
-    fn cancelled(&self, max: i64) -> zone::Code {
-        zone::below(max)
-    }
-    /// The bound under which a state lasts whose clock may run up to this one.
-    fn lasts(&self, limit: zone::Code) -> zone::Code {
-        zone::strictly(limit)
-    }
-    /// The bound on the constant less a clock that must have run for a while: a step after what fired before it, an
-    /// arrival after the one before it, a late input after its step.
-    fn later(&self) -> zone::Code {
-        zone::BELOW_ZERO
-    }
-    /// Must a gate that was disabled stay so for a while, if what could excite it again could have come together with
-    /// what disabled it?
-    fn cools(&self) -> bool {
-        true
-    }
-}
-
-/// The semantics of the engine.
-#[derive(Clone, Copy, Debug, Default)]
-pub struct Exact;
-
-impl Semantics for Exact {}
 
 /// Explores a plant from start states (values of inputs and gates; wires have those of their nets).
 pub fn explore<W: Watch>(plant: &Plant, starts: &[Vec<bool>], watch: &W, mode: Mode, budget: &Budget) -> Explored {
@@ -307,7 +102,6 @@ impl<'a, W: Watch, S: Semantics> Explorer<'a, W, S> {
             states: Vec::new(),
             hits: BTreeMap::new(),
             edges: Vec::new(),
-            cut: vec![false; plant.steps.len()],
             nodes: Vec::new(),
             movers: Vec::new(),
             keys: Vec::new(),
@@ -797,9 +591,6 @@ impl<'a, W: Watch, S: Semantics> Explorer<'a, W, S> {
                 self.state_number(&before)
             }
         };
-        if touches && !rested {
-            self.found.cut[steps] = true;
-        }
         let mut next = KeyMut { words: &mut self.words, layout };
         next.set_step(steps + stepping, new_origin);
         next.set_watch(state, fired);

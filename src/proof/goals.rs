@@ -1,7 +1,7 @@
 //! What a trace must do besides going its way, for a rule with a length to be broken: conditions on the times of its
 //! blocks.
 
-use super::explore::Fired;
+use super::explored::Fired;
 use super::key::{Mover, bit};
 use super::plant::Plant;
 use super::system::{Form, System};

@@ -3,7 +3,7 @@
 use std::collections::{BTreeMap, BTreeSet};
 
 use super::claim::{Call, Variation};
-use super::explore::{Explored, Mode, NOWHERE, Rest};
+use super::explored::{Explored, Mode, NOWHERE, Rest};
 use super::goals::Goal;
 use super::key::bit;
 use super::prove::{Prover, Unsaid, World, reached};

@@ -264,6 +264,17 @@ impl Plant {
         numbers
     }
 
+    /// May a step come at the very instant of the one before it?
+    pub fn may_coincide(&self, step: usize) -> bool {
+        let Some(before) = step.checked_sub(1).map(|before| self.steps[before].place) else { return false };
+        match (self.steps[step].place, before) {
+            (PlantPlace::Rest(_), _) => false,
+            (PlantPlace::After(after), _) => after.min == 0,
+            (PlantPlace::At(at), PlantPlace::At(before)) => at.min <= before.max,
+            (PlantPlace::At(_), _) => true,
+        }
+    }
+
     /// Number of signals: nets and wire ends.
     pub fn signals(&self) -> usize {
         self.nets.len() + self.wires.len()

@@ -8,29 +8,26 @@
 use std::collections::BTreeMap;
 use std::time::{Duration, Instant};
 
-use super::claim::{Call, Claim, Proof, Variation, WindowProof};
-use super::cycles::{RestVerdict, comes_to_rest};
-use super::explore::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, explore};
+use super::claim::{Call, Claim, Proof, Variation};
+use super::explore::explore;
+use super::explored::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE};
 use super::goals::Goal;
 use super::key::bit;
 use super::plant::Plant;
 use super::system::{Points, Sense, System};
 use super::watch::{Nothing, Watch};
-use super::watches::{Answered, Apart, Edge, Late, Moves, Settles, Shows, ShowsLonger, Swallows, Width};
+use super::watches::{Answered, Apart, Edge, Late, Moves, Shows, ShowsLonger, Swallows, Width};
 use super::witness::{case, one_draw};
-use crate::circuit::{Circuit, NetId};
+use crate::circuit::NetId;
 use crate::control::Control;
 use crate::engine::{Program, Trace};
 use crate::findings::{Answers, Asked, Judge, Pattern, Question, RuleKey};
 use crate::instance::{Instance, Which};
-use crate::logic::{Bits, State};
-use crate::scenario::{Alternative, Scenario};
+use crate::scenario::{Alternative, MomentKind, Scenario};
 use crate::time::Span;
 
 /// Gates of a cone that may begin at random, at most: every start is explored.
 const RANDOM_GATES: usize = 12;
-/// States listed of one window, at most.
-const STATES: usize = 4096;
 
 /// Traces that are made into cases for one claim, at most.
 const WAYS: usize = 16;
@@ -391,16 +388,23 @@ impl<'a> Prover<'a> {
         Ok(())
     }
 
-    /// The numbers of steps taken in the window of a question: from its step to the next that sets an input of the plant.
+    /// The numbers of steps taken in the window of a question: from its step to the next that surely begins another, since it
+    /// changes an input of the plant and cannot come at the instant of the one before it.
     pub(super) fn steps_of(&self, plant: &Plant, question: u32) -> std::ops::Range<u32> {
         let moment = self.asked.questions[question as usize].moment;
-        let stimulus = &self.scenario.stimulus;
-        let first = match moment.map(|moment| &stimulus.moments[moment as usize].kind) {
-            Some(crate::scenario::MomentKind::Step(step)) => step + 1,
+        let first = match moment.map(|moment| &self.scenario.stimulus.moments[moment as usize].kind) {
+            Some(MomentKind::Step(step)) => step + 1,
             _ => 0,
         };
-        let next = plant.steps.iter().enumerate().skip(first as usize).find(|(_, step)| !step.set.is_empty());
-        first..next.map_or(plant.steps.len() as u32 + 1, |(step, _)| step as u32 + 1)
+        let mut inputs = plant.initial.clone();
+        for (number, step) in plant.steps.iter().enumerate() {
+            let changes = step.set.iter().any(|(net, value)| inputs[*net as usize] != *value);
+            step.set.iter().for_each(|(net, value)| inputs[*net as usize] = *value);
+            if number as u32 >= first && changes && !plant.may_coincide(number) {
+                return first..number as u32 + 1;
+            }
+        }
+        first..plant.steps.len() as u32 + 1
     }
 
     fn glitches(&mut self, index: u32, questions: &[u32]) -> Result<(), Unsaid> {
@@ -479,7 +483,7 @@ impl<'a> Prover<'a> {
         let world = self.world(nets, &[])?;
         let ranges: Vec<(u32, std::ops::Range<u32>)> =
             questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
-        let bad = |found: &Explored, steps: &std::ops::Range<u32>| -> Vec<(u32, super::explore::Rest)> {
+        let bad = |found: &Explored, steps: &std::ops::Range<u32>| -> Vec<(u32, super::explored::Rest)> {
             let all = found.rests.iter().filter(|(rest, _)| {
                 let begins = rest.steps == 0 && steps.start == 0;
                 steps.contains(&rest.steps)
@@ -500,7 +504,7 @@ impl<'a> Prover<'a> {
         let (exact, short) = self.explore_some(&world, &Nothing, Mode::default());
         let (apart, apart_short) = self.explore_some(&world, &Nothing, Mode { joint: false, ..Mode::default() });
         let values =
-            |found: &Explored, rest: super::explore::Rest| (rest.steps, found.states[rest.state as usize].clone());
+            |found: &Explored, rest: super::explored::Rest| (rest.steps, found.states[rest.state as usize].clone());
         for (question, steps) in &ranges {
             let all = bad(&exact, steps);
             if all.is_empty() {
@@ -613,131 +617,6 @@ impl<'a> Prover<'a> {
             parts[circuit.block(gate) as usize].push(circuit.net_of(gate));
         }
         parts
-    }
-
-    /// What is known of whole windows.
-    fn windows(&mut self) {
-        let circuit = self.scenario.circuit.clone();
-        let parts = self.parts();
-        let steps = self.scenario.stimulus.steps.len();
-        let mut windows: Vec<Window> = vec![Window::default(); steps + 1];
-        for nets in &parts {
-            if self.part(&circuit, nets, &mut windows).is_err() {
-                return;
-            }
-        }
-        let power_up = self.scenario.begin_window().is_some();
-        let first = usize::from(!power_up);
-        for (taken, window) in windows.into_iter().enumerate().skip(first) {
-            let moment = if power_up { taken } else { taken - 1 } as u32;
-            self.proof.windows.push(window.done(self.scenario, taken, moment));
-        }
-    }
-
-    fn part(&mut self, circuit: &Circuit, nets: &[NetId], windows: &mut [Window]) -> Result<(), Unsaid> {
-        let world = self.world(nets, &[])?;
-        let found = self.explore(&world, &Nothing, Mode::default())?;
-        for (taken, window) in windows.iter_mut().enumerate() {
-            let mut states: Vec<State> = Vec::new();
-            for rest in found.rests.keys().filter(|rest| rest.steps as usize == taken) {
-                let mut state = State::known(Bits::zeros(circuit.net_count()));
-                for (local, net) in world.plant.nets.iter().enumerate() {
-                    state.set(net.index(), bit(&found.states[rest.state as usize], local).into());
-                }
-                if !states.contains(&state) {
-                    states.push(state);
-                }
-            }
-            window.join(states);
-        }
-        // without an end there is no greatest settling time; what takes exactly equal times is left out
-        let (joint, ties) = match comes_to_rest(&world.plant, &world.starts, &self.budget) {
-            RestVerdict::Always => (true, false),
-            RestVerdict::Cycles(cycles) if cycles.iter().all(|cycle| cycle.needs_ties == Some(true)) => (false, true),
-            RestVerdict::Cycles(_) | RestVerdict::Undecided(_) => {
-                windows.iter_mut().for_each(|window| window.settling = Some(None));
-                return Ok(());
-            }
-        };
-        let watch = Settles::default();
-        self.explore(&world, &watch, Mode { joint, ..Mode::default() })?;
-        for (taken, window) in windows.iter_mut().enumerate() {
-            let figures = watch.figures.borrow();
-            let these = figures
-                .get(&(taken as u32))
-                .map(|[least, most]| (world.plant.span(least.0), world.plant.span(most.0), !most.1));
-            window.settle(these, ties);
-        }
-        Ok(())
-    }
-}
-
-/// What the parts of a circuit say of one window, joined.
-#[derive(Clone, Debug, Default)]
-struct Window {
-    /// States, all nets; `None` before the first part, `Some(None)` where there are too many.
-    states: Option<Option<Vec<State>>>,
-    /// Least and greatest settling time, and whether the greatest is only come near to.
-    settling: Option<Option<(Span, Span, bool)>>,
-    ties: bool,
-}
-
-impl Window {
-    fn join(&mut self, states: Vec<State>) {
-        self.states = Some(match self.states.take() {
-            None => Some(states),
-            Some(None) => None,
-            Some(Some(all)) if all.len().saturating_mul(states.len()) > STATES => {
-                let _ = all;
-                None
-            }
-            Some(Some(all)) => {
-                let both = |(a, b): (&State, &State)| {
-                    let mut state = a.clone();
-                    for net in b.ones.ones() {
-                        state.set(net, true.into());
-                    }
-                    state
-                };
-                Some(all.iter().flat_map(|a| states.iter().map(move |b| (a, b))).map(both).collect())
-            }
-        });
-    }
-
-    fn settle(&mut self, figures: Option<(Span, Span, bool)>, ties: bool) {
-        self.ties |= ties;
-        self.settling = Some(match (self.settling.take(), figures) {
-            (None, figures) => figures,
-            (Some(None), _) | (_, None) => None,
-            (Some(Some(ours)), Some(theirs)) => {
-                let most = (ours.1, !ours.2).max((theirs.1, !theirs.2));
-                Some((ours.0.max(theirs.0), most.0, !most.1))
-            }
-        });
-    }
-
-    fn done(self, scenario: &Scenario, taken: usize, moment: u32) -> WindowProof {
-        // inputs that no gate reads belong to no part
-        let mut inputs = scenario.stimulus.initial.clone();
-        for step in &scenario.stimulus.steps[..taken] {
-            step.set.iter().for_each(|(net, value)| inputs[net.index()] = *value);
-        }
-        let mut states = self.states.flatten();
-        for state in states.iter_mut().flatten() {
-            inputs.iter().enumerate().for_each(|(net, value)| state.set(net, (*value).into()));
-        }
-        if let Some(states) = &mut states {
-            states.sort();
-            states.dedup();
-        }
-        let settling = self.settling.flatten();
-        WindowProof {
-            moment,
-            states,
-            settling: settling.map(|(least, most, _)| (least, most)),
-            settling_below: settling.is_some_and(|it| it.2),
-            settling_but_for_ties: self.ties,
-        }
     }
 }
 

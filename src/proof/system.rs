@@ -3,7 +3,7 @@
 
 use std::collections::VecDeque;
 
-use super::explore::Fired;
+use super::explored::Fired;
 use super::key::{Mover, bit, excited, put};
 use super::plant::{Plant, PlantPlace, Ticks};
 use super::simplex::{Program, Solved};

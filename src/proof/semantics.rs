@@ -1,0 +1,37 @@
+//! The rules of an exploration, so that tests can break one at a time.
+
+use super::zone;
+
+/// The rules on which an exploration rests. [`Exact`] has them as they must be; others are of use to show that tests would
+/// notice if one of them were wrong.
+pub trait Semantics {
+    /// From when on something with this least delay may fire.
+    fn due(&self, min: i64) -> i64 {
+        min
+    }
+    /// How old the event of a gate with this greatest delay may be when it is cancelled: at its deadline it would have
+    /// fired in this very batch.
+    fn cancelled(&self, max: i64) -> zone::Code {
+        zone::below(max)
+    }
+    /// The bound under which a state lasts whose clock may run up to this one.
+    fn lasts(&self, limit: zone::Code) -> zone::Code {
+        zone::strictly(limit)
+    }
+    /// The bound on the constant less a clock that must have run for a while: a step after what fired before it, an
+    /// arrival after the one before it, a late input after its step.
+    fn later(&self) -> zone::Code {
+        zone::BELOW_ZERO
+    }
+    /// Must a gate that was disabled stay so for a while, if what could excite it again could have come together with
+    /// what disabled it?
+    fn cools(&self) -> bool {
+        true
+    }
+}
+
+/// The semantics of the engine.
+#[derive(Clone, Copy, Debug, Default)]
+pub struct Exact;
+
+impl Semantics for Exact {}

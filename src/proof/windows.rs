@@ -1,0 +1,157 @@
+//! What is known of whole windows: states at rest and settling times, over all delays.
+
+use super::claim::WindowProof;
+use super::cycles::{RestVerdict, comes_to_rest};
+use super::explored::Mode;
+use super::key::bit;
+use super::plant::Plant;
+use super::prove::{Prover, Unsaid};
+use super::watch::Nothing;
+use super::watches::Settles;
+use crate::circuit::{Circuit, NetId};
+use crate::logic::{Bits, State};
+use crate::scenario::Scenario;
+use crate::time::Span;
+
+/// States listed of one window, at most.
+const STATES: usize = 4096;
+
+impl Prover<'_> {
+    /// What is known of whole windows.
+    pub(super) fn windows(&mut self) {
+        let circuit = self.scenario.circuit.clone();
+        let parts = self.parts();
+        let steps = self.scenario.stimulus.steps.len();
+        let mut windows: Vec<Window> = vec![Window::default(); steps + 1];
+        for nets in &parts {
+            if self.part(&circuit, nets, &mut windows).is_err() {
+                return;
+            }
+        }
+        let power_up = self.scenario.begin_window().is_some();
+        let first = usize::from(!power_up);
+        let coincide: Vec<bool> = match Plant::of(self.scenario, &[], &[]) {
+            Ok(plant) => (0..steps).map(|step| plant.may_coincide(step)).collect(),
+            Err(_) => return,
+        };
+        let shared = |taken: usize| {
+            let own = taken > 0 && coincide[taken - 1];
+            own || coincide.get(taken).is_some_and(|next| *next)
+        };
+        for (taken, window) in windows.into_iter().enumerate().skip(first) {
+            let moment = if power_up { taken } else { taken - 1 } as u32;
+            let mut window = window.done(self.scenario, taken, moment);
+            // steps of one instant share a window, named by the first: which, depends on the run
+            if shared(taken) {
+                (window.states, window.settling) = (None, None);
+            }
+            self.proof.windows.push(window);
+        }
+    }
+
+    fn part(&mut self, circuit: &Circuit, nets: &[NetId], windows: &mut [Window]) -> Result<(), Unsaid> {
+        let world = self.world(nets, &[])?;
+        let found = self.explore(&world, &Nothing, Mode::default())?;
+        for (taken, window) in windows.iter_mut().enumerate() {
+            let mut states: Vec<State> = Vec::new();
+            for rest in found.rests.keys().filter(|rest| rest.steps as usize == taken) {
+                let mut state = State::known(Bits::zeros(circuit.net_count()));
+                for (local, net) in world.plant.nets.iter().enumerate() {
+                    state.set(net.index(), bit(&found.states[rest.state as usize], local).into());
+                }
+                if !states.contains(&state) {
+                    states.push(state);
+                }
+            }
+            window.join(states);
+        }
+        // without an end there is no greatest settling time; what takes exactly equal times is left out
+        let (joint, ties) = match comes_to_rest(&world.plant, &world.starts, &self.budget) {
+            RestVerdict::Always => (true, false),
+            RestVerdict::Cycles(cycles) if cycles.iter().all(|cycle| cycle.needs_ties == Some(true)) => (false, true),
+            RestVerdict::Cycles(_) | RestVerdict::Undecided(_) => {
+                windows.iter_mut().for_each(|window| window.settling = Some(None));
+                return Ok(());
+            }
+        };
+        let watch = Settles::default();
+        self.explore(&world, &watch, Mode { joint, ..Mode::default() })?;
+        for (taken, window) in windows.iter_mut().enumerate() {
+            let figures = watch.figures.borrow();
+            let these = figures
+                .get(&(taken as u32))
+                .map(|[least, most]| (world.plant.span(least.0), world.plant.span(most.0), !most.1));
+            window.settle(these, ties);
+        }
+        Ok(())
+    }
+}
+
+/// What the parts of a circuit say of one window, joined.
+#[derive(Clone, Debug, Default)]
+struct Window {
+    /// States, all nets; `None` before the first part, `Some(None)` where there are too many.
+    states: Option<Option<Vec<State>>>,
+    /// Least and greatest settling time, and whether the greatest is only come near to.
+    settling: Option<Option<(Span, Span, bool)>>,
+    ties: bool,
+}
+
+impl Window {
+    fn join(&mut self, states: Vec<State>) {
+        self.states = Some(match self.states.take() {
+            None => Some(states),
+            Some(None) => None,
+            Some(Some(all)) if all.len().saturating_mul(states.len()) > STATES => {
+                let _ = all;
+                None
+            }
+            Some(Some(all)) => {
+                let both = |(a, b): (&State, &State)| {
+                    let mut state = a.clone();
+                    for net in b.ones.ones() {
+                        state.set(net, true.into());
+                    }
+                    state
+                };
+                Some(all.iter().flat_map(|a| states.iter().map(move |b| (a, b))).map(both).collect())
+            }
+        });
+    }
+
+    fn settle(&mut self, figures: Option<(Span, Span, bool)>, ties: bool) {
+        self.ties |= ties;
+        self.settling = Some(match (self.settling.take(), figures) {
+            (None, figures) => figures,
+            (Some(None), _) | (_, None) => None,
+            (Some(Some(ours)), Some(theirs)) => {
+                let most = (ours.1, !ours.2).max((theirs.1, !theirs.2));
+                Some((ours.0.max(theirs.0), most.0, !most.1))
+            }
+        });
+    }
+
+    fn done(self, scenario: &Scenario, taken: usize, moment: u32) -> WindowProof {
+        // inputs that no gate reads belong to no part
+        let mut inputs = scenario.stimulus.initial.clone();
+        for step in &scenario.stimulus.steps[..taken] {
+            step.set.iter().for_each(|(net, value)| inputs[net.index()] = *value);
+        }
+        let mut states = self.states.flatten();
+        for state in states.iter_mut().flatten() {
+            inputs.iter().enumerate().for_each(|(net, value)| state.set(net, (*value).into()));
+        }
+        if let Some(states) = &mut states {
+            states.sort();
+            states.dedup();
+        }
+        let settling = self.settling.flatten();
+        WindowProof {
+            moment,
+            states,
+            settling: settling.map(|(least, most, _)| (least, most)),
+            settling_below: settling.is_some_and(|it| it.2),
+            settling_but_for_ties: self.ties,
+        }
+    }
+}
