@@ -157,6 +157,14 @@ fn windows_go_on_past_steps_that_begin_none() {
     }
 }
 
+/// `never` looks at the state at the start as well, even where the first step comes at once.
+#[test]
+fn the_start_counts() {
+    let text = "[inputs]\na = 0\n[gates]\ny = { buf = [\"a\"], delay = [2, 3] }\n[[rules.never]]\nstate = { a = 0, y = 0 }\n[[steps]]\nat = 0\nset = { a = 1 }\n";
+    assert_eq!(call(text, "never"), (Call::Refuted, false));
+    assert_eq!(call(&text.replace("{ a = 0, y = 0 }", "{ a = 0, y = 1 }"), "never"), (Call::Proved, false));
+}
+
 /// The command writes a case for what is refuted, and the case shows it when it is run as the text says.
 #[test]
 fn refuted_cases_replay() {

@@ -4,7 +4,7 @@
 //! 1995). What is due at one instant may fire together; only sets that no part of could fire first are tried (see
 //! `joint.rs`). Judged is what lasts: a state from which time may go on before the next batch.
 
-use std::collections::{BTreeMap, VecDeque};
+use std::collections::VecDeque;
 use std::time::Instant;
 
 use rustc_hash::FxHashMap;
@@ -94,19 +94,7 @@ struct Explorer<'a, W, S> {
 impl<'a, W: Watch, S: Semantics> Explorer<'a, W, S> {
     fn new(semantics: &'a S, plant: &'a Plant, watch: &'a W, mode: Mode, budget: &'a Budget) -> Self {
         let layout = Layout::of(plant);
-        let found = Explored {
-            ended: Ended::Complete,
-            zones: 0,
-            bytes: 0,
-            rests: BTreeMap::new(),
-            states: Vec::new(),
-            hits: BTreeMap::new(),
-            edges: Vec::new(),
-            nodes: Vec::new(),
-            movers: Vec::new(),
-            keys: Vec::new(),
-            layout,
-        };
+        let found = Explored::nothing(plant);
         Explorer {
             semantics,
             plant,

@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 use std::time::Instant;
 
 use super::key::{Key, Layout, Mover};
+use super::plant::Plant;
 use crate::control::Control;
 
 /// The origin of a window that did not begin at rest, or of none.
@@ -131,6 +132,23 @@ pub struct Explored {
 }
 
 impl Explored {
+    /// Of a plant that was not explored yet.
+    pub(super) fn nothing(plant: &Plant) -> Explored {
+        Explored {
+            ended: Ended::Complete,
+            zones: 0,
+            bytes: 0,
+            rests: BTreeMap::new(),
+            states: Vec::new(),
+            hits: BTreeMap::new(),
+            edges: Vec::new(),
+            nodes: Vec::new(),
+            movers: Vec::new(),
+            keys: Vec::new(),
+            layout: Layout::of(plant),
+        }
+    }
+
     pub(super) fn key(&self, number: u32) -> Key<'_> {
         let at = number as usize * self.layout.len;
         Key { words: &self.keys[at..at + self.layout.len], layout: self.layout }

@@ -214,6 +214,12 @@ impl<'a> Prover<'a> {
                 let nets: Vec<NetId> = never.state.iter().map(|(net, _)| *net).collect();
                 let world = self.world(&nets, &[never.longer_than])?;
                 let pattern = local(&world.plant, &never.state);
+                // the state at the start counts, even where the first step comes at that very instant
+                let at_start = |start: &Vec<bool>| pattern.iter().all(|(net, value)| start[*net as usize] == *value);
+                if never.longer_than == Span::ZERO && world.starts.iter().any(at_start) {
+                    self.refute(&world, &Explored::nothing(&world.plant), &[], questions[0], &Goal::Reached);
+                    return Ok(());
+                }
                 if never.longer_than == Span::ZERO {
                     self.whole_run(&world, &Shows { pattern }, &Goal::Reached, questions[0])
                 } else {
@@ -537,7 +543,7 @@ impl<'a> Prover<'a> {
 
     /// Traces break a question: makes one of them a case, runs it, and says what came of it.
     pub(super) fn refute(&mut self, world: &World, found: &Explored, ways: &[(u32, bool)], question: u32, goal: &Goal) {
-        let but_for_ties = ways.iter().all(|(_, tie)| *tie);
+        let but_for_ties = !ways.is_empty() && ways.iter().all(|(_, tie)| *tie);
         let mut witness = None;
         let mut reason = "delays were found, but their run does not show it";
         for (node, _) in ways.iter().take(WAYS) {
