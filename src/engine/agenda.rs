@@ -1,5 +1,6 @@
 //! What comes from outside: steps, skewed input changes, bounces, patterns that steps wait for, clock edges.
 
+use super::plan::{From, Simple};
 use crate::circuit::NetId;
 use crate::instance::Instance;
 use crate::logic::{State, Value};
@@ -115,6 +116,47 @@ impl Agenda {
         match (next, self.next_step(stimulus, instance, rest_since)) {
             (Some(a), Some(b)) => Some(a.min(b)),
             (a, b) => a.or(b),
+        }
+    }
+
+    /// Takes out the step that is due at `at`, at rest, if it is all that is due and is simple: its moment, the input and
+    /// its value. Else nothing is done.
+    #[inline(always)]
+    pub(super) fn take_simple(
+        &mut self,
+        at: Time,
+        steps: &[Simple],
+        instance: &Instance,
+    ) -> Option<(u32, NetId, bool)> {
+        if !self.later.is_empty() || !self.clocks.is_empty() {
+            return None;
+        }
+        let step = steps[self.step];
+        let (net, value) = step.sets?;
+        if let Some(next) = steps.get(self.step + 1) {
+            let wait = instance.places[self.step + 1];
+            match next.from {
+                From::Start if Time::ZERO + wait <= at => return None,
+                From::StepBefore if wait == Span::ZERO => return None,
+                From::Pattern => {
+                    self.came = None;
+                    self.waiting = true;
+                }
+                _ => {}
+            }
+        }
+        self.last_step = at;
+        self.step += 1;
+        Some((step.moment, net, value))
+    }
+
+    /// As [`Agenda::next`] away from rest, after [`Agenda::take_simple`] gave a step.
+    #[inline(always)]
+    pub(super) fn next_simple(&self, steps: &[Simple], instance: &Instance) -> Option<Time> {
+        match steps.get(self.step)?.from {
+            From::Start => Some(Time::ZERO + instance.places[self.step]),
+            From::StepBefore => Some(self.last_step + instance.places[self.step]),
+            From::Rest | From::Pattern => None,
         }
     }
 

@@ -49,7 +49,9 @@ impl Level for Bit {
 
     #[inline]
     fn absorb(sum: &mut u64, weight: u64, _old: Bit, new: Bit) {
-        *sum = if new.0 { sum.wrapping_add(weight) } else { sum.wrapping_sub(weight) };
+        // plus the weight, or minus: all ones or none flips it
+        let down = u64::from(new.0).wrapping_sub(1);
+        *sum = sum.wrapping_add((weight ^ down).wrapping_sub(down));
     }
 
     #[inline]

@@ -19,7 +19,7 @@ use kernel::{Anew, Kernel, Many, One};
 use level::{Bit, Ternary};
 pub use observer::{Cancelled, Closing, Deaf, End, Finish, Hit, Observer, Opening, Site};
 use plan::Plan;
-use queue::{Heap, Sorted};
+use queue::{Sorted, Wheel};
 pub use trace::{Arrival, Change, Link, Lost, Trace, Window};
 
 use crate::control::Control;
@@ -68,7 +68,7 @@ impl Program {
         self.machine_with(list, self.plan.needs_lists())
     }
 
-    /// A machine with a chosen queue (sorted list, else heap) and, where one pending event a node would do, lists all
+    /// A machine with a chosen queue (sorted list, else wheel) and, where one pending event a node would do, lists all
     /// the same. All choices give the same run; for tests and benchmarks.
     pub fn machine_with<T: Copy + Default>(&self, sorted: bool, lists: bool) -> Machine<T> {
         let plan = self.plan.clone();
@@ -76,12 +76,12 @@ impl Program {
         let core = match (self.ternary, sorted, lists) {
             (false, true, false) => Core::BitSortedOne(Kernel::new(&plan)),
             (false, true, true) => Core::BitSortedMany(Kernel::new(&plan)),
-            (false, false, false) => Core::BitHeapOne(Kernel::new(&plan)),
-            (false, false, true) => Core::BitHeapMany(Kernel::new(&plan)),
+            (false, false, false) => Core::BitWheelOne(Kernel::new(&plan)),
+            (false, false, true) => Core::BitWheelMany(Kernel::new(&plan)),
             (true, true, false) => Core::TernarySortedOne(Kernel::new(&plan)),
             (true, true, true) => Core::TernarySortedMany(Kernel::new(&plan)),
-            (true, false, false) => Core::TernaryHeapOne(Kernel::new(&plan)),
-            (true, false, true) => Core::TernaryHeapMany(Kernel::new(&plan)),
+            (true, false, false) => Core::TernaryWheelOne(Kernel::new(&plan)),
+            (true, false, true) => Core::TernaryWheelMany(Kernel::new(&plan)),
         };
         Machine { plan, core, anew: None, choice: (self.ternary, sorted) }
     }
@@ -100,16 +100,16 @@ pub struct Machine<T> {
 enum Core<T> {
     BitSortedOne(Kernel<Bit, Sorted, One, T>),
     BitSortedMany(Kernel<Bit, Sorted, Many, T>),
-    BitHeapOne(Kernel<Bit, Heap, One, T>),
-    BitHeapMany(Kernel<Bit, Heap, Many, T>),
+    BitWheelOne(Kernel<Bit, Wheel, One, T>),
+    BitWheelMany(Kernel<Bit, Wheel, Many, T>),
     TernarySortedOne(Kernel<Ternary, Sorted, One, T>),
     TernarySortedMany(Kernel<Ternary, Sorted, Many, T>),
-    TernaryHeapOne(Kernel<Ternary, Heap, One, T>),
-    TernaryHeapMany(Kernel<Ternary, Heap, Many, T>),
+    TernaryWheelOne(Kernel<Ternary, Wheel, One, T>),
+    TernaryWheelMany(Kernel<Ternary, Wheel, Many, T>),
     BitSortedAnew(Kernel<Bit, Sorted, Anew, T>),
-    BitHeapAnew(Kernel<Bit, Heap, Anew, T>),
+    BitWheelAnew(Kernel<Bit, Wheel, Anew, T>),
     TernarySortedAnew(Kernel<Ternary, Sorted, Anew, T>),
-    TernaryHeapAnew(Kernel<Ternary, Heap, Anew, T>),
+    TernaryWheelAnew(Kernel<Ternary, Wheel, Anew, T>),
 }
 
 impl<T: Copy + Default> Machine<T> {
@@ -121,24 +121,24 @@ impl<T: Copy + Default> Machine<T> {
             None => &mut self.core,
             Some(_) => self.anew.get_or_insert_with(|| match self.choice {
                 (false, true) => Core::BitSortedAnew(Kernel::new(plan)),
-                (false, false) => Core::BitHeapAnew(Kernel::new(plan)),
+                (false, false) => Core::BitWheelAnew(Kernel::new(plan)),
                 (true, true) => Core::TernarySortedAnew(Kernel::new(plan)),
-                (true, false) => Core::TernaryHeapAnew(Kernel::new(plan)),
+                (true, false) => Core::TernaryWheelAnew(Kernel::new(plan)),
             }),
         };
         match core {
             Core::BitSortedOne(kernel) => kernel.run(plan, instance, control, observer),
             Core::BitSortedMany(kernel) => kernel.run(plan, instance, control, observer),
-            Core::BitHeapOne(kernel) => kernel.run(plan, instance, control, observer),
-            Core::BitHeapMany(kernel) => kernel.run(plan, instance, control, observer),
+            Core::BitWheelOne(kernel) => kernel.run(plan, instance, control, observer),
+            Core::BitWheelMany(kernel) => kernel.run(plan, instance, control, observer),
             Core::TernarySortedOne(kernel) => kernel.run(plan, instance, control, observer),
             Core::TernarySortedMany(kernel) => kernel.run(plan, instance, control, observer),
-            Core::TernaryHeapOne(kernel) => kernel.run(plan, instance, control, observer),
-            Core::TernaryHeapMany(kernel) => kernel.run(plan, instance, control, observer),
+            Core::TernaryWheelOne(kernel) => kernel.run(plan, instance, control, observer),
+            Core::TernaryWheelMany(kernel) => kernel.run(plan, instance, control, observer),
             Core::BitSortedAnew(kernel) => kernel.run(plan, instance, control, observer),
-            Core::BitHeapAnew(kernel) => kernel.run(plan, instance, control, observer),
+            Core::BitWheelAnew(kernel) => kernel.run(plan, instance, control, observer),
             Core::TernarySortedAnew(kernel) => kernel.run(plan, instance, control, observer),
-            Core::TernaryHeapAnew(kernel) => kernel.run(plan, instance, control, observer),
+            Core::TernaryWheelAnew(kernel) => kernel.run(plan, instance, control, observer),
         }
     }
 }

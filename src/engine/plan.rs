@@ -7,7 +7,7 @@ use crate::circuit::{Circuit, Compiled, GateId, NetId, WireId};
 use crate::delay::Filter;
 use crate::instance::Instance;
 use crate::logic::{Bits, State, Value};
-use crate::scenario::{Begin, Limits, Scenario, Stimulus};
+use crate::scenario::{Begin, Limits, Place, Scenario, Stimulus};
 use crate::time::Span;
 
 /// One reader of a node's value: a gate, or a wire (numbers from the number of gates on).
@@ -48,10 +48,32 @@ impl Kind {
     }
 }
 
+/// What a step does, where it is the simple case: one input, without skew and bounce.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Simple {
+    /// The input and its value; `None` if the step is not simple.
+    pub sets: Option<(NetId, bool)>,
+    /// Its moment.
+    pub moment: u32,
+    /// What its time counts from.
+    pub from: From,
+}
+
+/// What the time of a step counts from.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum From {
+    Start,
+    StepBefore,
+    Rest,
+    Pattern,
+}
+
 #[derive(Clone, Debug)]
 pub(super) struct Plan {
     pub circuit: Arc<Circuit>,
     pub stimulus: Arc<Stimulus>,
+    /// One a step.
+    pub steps: Vec<Simple>,
     pub limits: Limits,
     pub inputs: u32,
     pub gates: u32,
@@ -111,6 +133,24 @@ impl Plan {
             false => Vec::new(),
         };
 
+        let stimulus = &scenario.stimulus;
+        let steps = (0u32..)
+            .zip(&stimulus.steps)
+            .map(|(number, step)| Simple {
+                sets: match step.set.as_slice() {
+                    [set] if step.skew.is_none() && step.bounce.is_none() => Some(*set),
+                    _ => None,
+                },
+                moment: stimulus.moment_of_step(number),
+                from: match step.place {
+                    Place::At(_) => From::Start,
+                    Place::After(_) => From::StepBefore,
+                    Place::Rest(_) => From::Rest,
+                    Place::When { .. } => From::Pattern,
+                },
+            })
+            .collect();
+
         let with_inputs = |gate: Value| {
             let mut state = State::zeros(circuit.net_count());
             for (input, value) in scenario.stimulus.initial.iter().enumerate() {
@@ -128,6 +168,7 @@ impl Plan {
         };
         Plan {
             stimulus: scenario.stimulus.clone(),
+            steps,
             limits: scenario.limits,
             inputs: inputs as u32,
             gates: gates as u32,
@@ -164,6 +205,12 @@ impl Plan {
     /// The net that a wire comes from.
     pub(super) fn wire_source(&self, wire: usize) -> NetId {
         self.circuit.wires()[wire].0
+    }
+
+    /// The block that a node belongs to.
+    pub(super) fn block(&self, node: u32) -> u32 {
+        let gate = node.checked_sub(self.gates).map_or(GateId(node), |wire| self.circuit.wires()[wire as usize].1);
+        self.circuit.block(gate)
     }
 
     /// The gate or wire that a node is.

@@ -28,20 +28,44 @@ pub(super) struct Recurred {
     pub moving: Vec<(NetId, u32)>,
 }
 
+/// What is noted of a node.
+#[derive(Clone, Copy, Debug)]
+struct Slot {
+    noted: Value,
+    /// Does it have another value now?
+    differs: bool,
+    /// How often it has moved since.
+    moves: u32,
+}
+
 #[derive(Clone, Debug, Default)]
 struct Note {
     active: bool,
     /// How many events with delays of their own the block had scheduled.
     own: u64,
     at: u64,
-    values: Vec<Value>,
+    /// One a member.
+    slots: Vec<Slot>,
     pending: Vec<Rest>,
-    counts: Vec<u32>,
     differing: u32,
     passes: u32,
     last_pass: u64,
     least: u64,
     greatest: u64,
+}
+
+/// What is counted of a block.
+#[derive(Clone, Copy, Debug)]
+struct Counter {
+    count: u64,
+    /// At or above this count a transition needs a closer look; 0 while a note is active.
+    watch: u64,
+    next_note: u64,
+    recurred: bool,
+}
+
+impl Counter {
+    const NEW: Counter = Counter { count: 0, watch: FIRST_NOTE, next_note: FIRST_NOTE, recurred: false };
 }
 
 /// The state of the search, for every block of a circuit. Nodes are gates, then wires.
@@ -52,13 +76,10 @@ pub(super) struct Recurrence {
     member_start: Vec<u32>,
     members: Vec<u32>,
     gates: u32,
-    /// Blocks that read each input.
-    readers: Vec<Vec<u32>>,
-    count: Vec<u64>,
-    /// At or above this count a transition needs a closer look; 0 while a note is active.
-    watch: Vec<u64>,
-    next_note: Vec<u64>,
-    recurred: Vec<bool>,
+    /// Blocks that read each input: from here to there in `reading`.
+    readers: Vec<(u32, u32)>,
+    reading: Vec<u32>,
+    counters: Vec<Counter>,
     /// Blocks that have recurred, in the order in which they did.
     found: Vec<(u32, Recurred)>,
     notes: Vec<Note>,
@@ -92,13 +113,16 @@ impl Recurrence {
             slot[node] = *place - member_start[*block as usize];
             *place += 1;
         }
+        let mut reading = Vec::new();
         let readers = circuit
             .inputs()
             .map(|input| {
+                let first = reading.len() as u32;
                 let mut blocks: Vec<u32> = circuit.readers(input).iter().map(|r| circuit.block(r.gate)).collect();
                 blocks.sort_unstable();
                 blocks.dedup();
-                blocks
+                reading.extend(blocks);
+                (first, reading.len() as u32)
             })
             .collect();
         Recurrence {
@@ -108,10 +132,8 @@ impl Recurrence {
             members,
             gates: gates as u32,
             readers,
-            count: vec![0; blocks],
-            watch: vec![FIRST_NOTE; blocks],
-            next_note: vec![FIRST_NOTE; blocks],
-            recurred: vec![false; blocks],
+            reading,
+            counters: vec![Counter::NEW; blocks],
             found: Vec::new(),
             notes: vec![Note::default(); blocks],
             touched: Vec::new(),
@@ -121,68 +143,63 @@ impl Recurrence {
     }
 
     pub(super) fn reset(&mut self) {
-        self.count.fill(0);
-        self.watch.fill(FIRST_NOTE);
-        self.next_note.fill(FIRST_NOTE);
-        self.recurred.fill(false);
+        self.counters.fill(Counter::NEW);
         self.found.clear();
         self.touched.clear();
     }
 
     /// An input changes: the blocks that read it begin anew.
+    #[inline]
     pub(super) fn input_changed(&mut self, input: NetId) {
-        for block in &self.readers[input.index()] {
-            let b = *block as usize;
-            self.count[b] = 0;
-            self.watch[b] = FIRST_NOTE;
-            self.next_note[b] = FIRST_NOTE;
-            if self.recurred[b] {
-                self.recurred[b] = false;
+        let (first, last) = self.readers[input.index()];
+        for block in &self.reading[first as usize..last as usize] {
+            let counter = &mut self.counters[*block as usize];
+            if counter.recurred {
                 self.found.retain(|(found, _)| found != block);
             }
+            *counter = Counter::NEW;
         }
     }
 
-    /// A gate's net changes; returns whether [`Recurrence::moved`] must be called too.
+    /// The net of a gate of this block changes; returns whether [`Recurrence::moved`] must be called too.
     #[inline]
-    pub(super) fn count(&mut self, gate: u32) -> bool {
-        let b = self.block_of[gate as usize] as usize;
-        self.count[b] += 1;
-        self.count[b] >= self.watch[b]
+    pub(super) fn count(&mut self, block: u32) -> bool {
+        let counter = &mut self.counters[block as usize];
+        counter.count += 1;
+        counter.count >= counter.watch
     }
 
-    /// A change arrives at a wire's end; returns whether [`Recurrence::moved`] must be called too.
+    /// A change arrives at the end of a wire to this block; returns whether [`Recurrence::moved`] must be called too.
     #[inline]
-    pub(super) fn watches(&self, wire_node: u32) -> bool {
-        self.watch[self.block_of[wire_node as usize] as usize] == 0
+    pub(super) fn watches(&self, block: u32) -> bool {
+        self.counters[block as usize].watch == 0
     }
 
-    /// A node of a watched block takes a new value.
-    #[cold]
-    pub(super) fn moved(&mut self, node: u32, new: Value) {
-        let block = self.block_of[node as usize];
+    /// A node of a block takes a new value, and [`Recurrence::count`] or [`Recurrence::watches`] said so. Returns whether
+    /// [`Recurrence::end_batch`] must be called.
+    pub(super) fn moved(&mut self, node: u32, block: u32, new: Value) -> bool {
         let b = block as usize;
-        if self.recurred[b] {
-            return;
+        let counter = self.counters[b];
+        if counter.recurred {
+            return false;
         }
-        if self.stamp[b] != self.batch + 1 {
+        let note = &mut self.notes[b];
+        let mut same = false;
+        if counter.watch == 0 && note.active {
+            let slot = &mut note.slots[self.slot[node as usize] as usize];
+            // three values: a net may move between two values that both differ from the note
+            let differs = slot.noted != new;
+            note.differing = note.differing + u32::from(differs) - u32::from(slot.differs);
+            slot.differs = differs;
+            slot.moves += 1;
+            same = note.differing == 0;
+        }
+        let look = same || counter.count >= counter.next_note;
+        if look && self.stamp[b] != self.batch + 1 {
             self.stamp[b] = self.batch + 1;
             self.touched.push(block);
         }
-        let note = &mut self.notes[b];
-        if self.watch[b] == 0 && note.active {
-            let slot = self.slot[node as usize] as usize;
-            // three values: a net may move between two values that both differ from the note
-            let was_differing = note.counts[slot] & DIFFERS != 0;
-            let differs = note.values[slot] != new;
-            match (was_differing, differs) {
-                (false, true) => note.differing += 1,
-                (true, false) => note.differing -= 1,
-                _ => {}
-            }
-            let moves = (note.counts[slot] & !DIFFERS) + 1;
-            note.counts[slot] = moves | if differs { DIFFERS } else { 0 };
-        }
+        look
     }
 
     /// Must [`Recurrence::end_batch`] be called?
@@ -225,7 +242,7 @@ impl Recurrence {
         let b = block as usize;
         let members = &self.members[self.member_start[b] as usize..self.member_start[b + 1] as usize];
         let note = &mut self.notes[b];
-        let active = self.watch[b] == 0 && note.active;
+        let active = self.counters[b].watch == 0 && note.active;
         if active && note.differing == 0 {
             let mut rest = Vec::new();
             for node in members {
@@ -234,9 +251,9 @@ impl Recurrence {
             let moving = |note: &Note| {
                 members
                     .iter()
-                    .zip(&note.counts)
-                    .filter(|(node, count)| **node < self.gates && **count & !DIFFERS > 0)
-                    .map(|(node, count)| (net_of(*node), count & !DIFFERS))
+                    .zip(&note.slots)
+                    .filter(|(node, slot)| **node < self.gates && slot.moves > 0)
+                    .map(|(node, slot)| (net_of(*node), slot.moves))
                     .collect()
             };
             let found = if rest == note.pending && note.own == members.iter().map(|node| own(*node)).sum::<u64>() {
@@ -255,33 +272,33 @@ impl Recurrence {
             };
             if let Some(found) = found {
                 note.active = false;
-                self.recurred[b] = true;
-                self.watch[b] = u64::MAX;
+                self.counters[b].recurred = true;
+                self.counters[b].watch = u64::MAX;
                 self.found.push((block, found));
                 return;
             }
         }
-        if self.count[b] >= self.next_note[b] {
-            while self.next_note[b] <= self.count[b] {
-                self.next_note[b] *= 2;
+        let counter = &mut self.counters[b];
+        if counter.count >= counter.next_note {
+            while counter.next_note <= counter.count {
+                counter.next_note *= 2;
             }
             note.active = true;
             note.own = members.iter().map(|node| own(*node)).sum();
             note.at = now;
-            note.values.clear();
-            note.values.extend(members.iter().map(|node| value(*node)));
+            note.slots.clear();
+            let slot = |node: &u32| Slot { noted: value(*node), differs: false, moves: 0 };
+            note.slots.extend(members.iter().map(slot));
             note.pending.clear();
             for node in members {
                 pending(*node, &mut note.pending);
             }
-            note.counts.clear();
-            note.counts.resize(members.len(), 0);
             note.differing = 0;
             note.passes = 0;
             note.last_pass = now;
             note.least = u64::MAX;
             note.greatest = 0;
-            self.watch[b] = 0;
+            counter.watch = 0;
         }
     }
 
@@ -291,17 +308,14 @@ impl Recurrence {
         !self.found.is_empty()
     }
 
-    /// Has the block of this node recurred?
-    pub(super) fn has(&self, node: u32) -> bool {
-        self.recurred[self.block_of[node as usize] as usize]
+    /// Has this block recurred?
+    pub(super) fn has(&self, block: u32) -> bool {
+        self.counters[block as usize].recurred
     }
 
     /// The block that recurred first, of those of these nodes: a block that never was exactly periodic may have died.
-    pub(super) fn first<I: Iterator<Item = u32>>(&self, at_work: impl Fn() -> I) -> Option<&Recurred> {
-        let works = |block: u32| at_work().any(|node| self.block_of[node as usize] == block);
+    pub(super) fn first(&self, at_work: &[u32]) -> Option<&Recurred> {
+        let works = |block: u32| at_work.iter().any(|node| self.block_of[*node as usize] == block);
         self.found.iter().find(|(block, _)| works(*block)).map(|(_, recurred)| recurred)
     }
 }
-
-/// Top bit of a count: the value differs from the note.
-const DIFFERS: u32 = 1 << 31;
