@@ -1,5 +1,6 @@
 //! The discrete part of an explored state, as words: values, step, what is on its way, what a watch remembers.
 
+use super::passed;
 use super::plant::{Plant, PlantPlace, Ticks};
 use super::zone::{self, Code};
 
@@ -214,13 +215,53 @@ pub(super) struct Info {
     pub rest: bool,
     /// Row of the first clock of the watch.
     pub watch_row: usize,
-    /// Is it a timed step that comes next?
-    pub timed: bool,
+    /// For each row the least delay that its clock waits for (2L + 1), as far as it may count whether that is over and no
+    /// more; else [`passed::EXACT`].
+    pub least: Vec<Code>,
 }
 
 impl Info {
+    /// Bytes that it takes.
+    pub fn memory(&self) -> usize {
+        use std::mem::size_of;
+        size_of::<Info>()
+            + self.slots.len() * size_of::<Slot>()
+            + self.agents.len() * (size_of::<Agent>() + size_of::<u64>())
+            + self.limits.len() * size_of::<(usize, Code)>()
+            + self.least.len() * size_of::<Code>()
+            + self.excited.len() * size_of::<u64>()
+    }
+
     pub fn row(&self, slot: Slot) -> usize {
         self.slots.iter().position(|it| *it == slot).map_or(0, |at| at + 1)
+    }
+
+    /// As [`Info::row`], looking first behind the row that was found before: most clocks stay in order.
+    #[inline]
+    pub fn row_after(&self, slot: Slot, before: usize) -> usize {
+        match self.slots.get(before) {
+            Some(it) if *it == slot => before + 1,
+            _ => self.row(slot),
+        }
+    }
+
+    /// Sets `least`, where something may fire from `due` of its least delay on.
+    pub fn waits(&mut self, plant: &Plant, key: Key<'_>, due: impl Fn(i64) -> i64) {
+        self.least = vec![passed::EXACT; self.slots.len() + 1];
+        for (slot, row) in self.slots.iter().zip(1..) {
+            let least = match *slot {
+                Slot::Gate(_) => self.agents.iter().find(|agent| agent.row == row).map(|agent| due(agent.min)),
+                // overtaking asks for strictly more than some least delays
+                Slot::Flight(wire, place) => Some(due(flight_delay(plant, key.values(), wire as usize, place).min) + 1),
+                // it must also be strictly after the step before
+                Slot::Since if key.skew() == 0 => match plant.steps.get(key.steps()).map(|step| step.place) {
+                    Some(PlantPlace::After(ticks)) => Some(due(ticks.min).max(1)),
+                    _ => None,
+                },
+                _ => None,
+            };
+            self.least[row] = least.map_or(passed::EXACT, zone::at_most);
+        }
     }
 }
 
@@ -269,7 +310,6 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
     let place = plant.steps.get(taken).map(|step| step.place);
     let skewed = key.skew() != 0;
     let timed = matches!(place, Some(PlantPlace::At(_) | PlantPlace::After(_)));
-    info.timed = timed;
     if skewed || timed {
         info.slots.push(Slot::Since);
     }
