@@ -64,6 +64,8 @@ enum Rule {
     Later,
     /// Excites again at once.
     Cools,
+    /// Takes an event for old from its beginning on.
+    Old,
 }
 
 type Rules = (Rule, Mode);
@@ -74,6 +76,9 @@ const RIGHT: Rules = (Rule::Right, TOGETHER);
 impl Semantics for Rule {
     fn due(&self, min: i64) -> i64 {
         if *self == Rule::Due { min - 1 } else { Exact.due(min) }
+    }
+    fn old(&self, min: i64) -> i64 {
+        if *self == Rule::Old { 0 } else { Exact.old(min) }
     }
     fn cancelled(&self, max: i64) -> Code {
         if *self == Rule::Cancelled { zone::at_most(max) } else { Exact.cancelled(max) }
@@ -519,7 +524,8 @@ fn a_weaker_rule_is_noticed() {
         Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true },
     ];
     let apart = Mode { joint: false, ..TOGETHER };
-    let weaker = [Rule::Due, Rule::Cancelled, Rule::Lasts, Rule::Later, Rule::Cools].map(|rule| (rule, TOGETHER));
+    let weaker =
+        [Rule::Due, Rule::Cancelled, Rule::Lasts, Rule::Later, Rule::Cools, Rule::Old].map(|rule| (rule, TOGETHER));
     for rules in weaker.into_iter().chain([(Rule::Right, apart)]) {
         let mut met = Met::default();
         let noticed = (0..3000).position(|stream| {

@@ -152,6 +152,7 @@ impl Explored {
         }
     }
 
+    #[inline]
     pub(super) fn key(&self, number: u32) -> Key<'_> {
         let at = number as usize * self.layout.len;
         Key { words: &self.keys[at..at + self.layout.len], layout: self.layout }

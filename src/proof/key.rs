@@ -69,20 +69,24 @@ pub(super) fn put(words: &mut [u64], at: usize, value: bool) {
 
 impl<'a> Key<'a> {
     /// The values of all signals.
+    #[inline]
     pub fn values(&self) -> &'a [u64] {
         &self.words[..self.layout.values]
     }
 
     /// Steps taken.
+    #[inline]
     pub fn steps(&self) -> usize {
         self.words[self.layout.step] as u32 as usize
     }
 
     /// The number of the state at rest in which the present window began; `NOWHERE` if it did not begin at rest.
+    #[inline]
     pub fn origin(&self) -> u32 {
         (self.words[self.layout.step] >> 32) as u32
     }
 
+    #[inline]
     pub fn watch(&self) -> u32 {
         self.words[self.layout.watch] as u32
     }
@@ -92,6 +96,7 @@ impl<'a> Key<'a> {
         self.words[self.layout.watch] & FIRED != 0
     }
 
+    #[inline]
     pub fn skew(&self) -> u64 {
         self.words[self.layout.skew]
     }
@@ -100,6 +105,7 @@ impl<'a> Key<'a> {
         (self.words[self.layout.flights + wire / 8] >> (8 * (wire % 8))) as u8
     }
 
+    #[inline]
     pub fn flights(&self, wire: usize) -> u8 {
         self.of_wire(wire) & !APART
     }
@@ -109,10 +115,12 @@ impl<'a> Key<'a> {
         self.of_wire(wire) & APART != 0
     }
 
+    #[inline]
     pub fn cools(&self, gate: usize) -> bool {
         bit(&self.words[self.layout.cool..], gate)
     }
 
+    #[inline]
     pub fn any_cools(&self) -> bool {
         self.words[self.layout.cool..self.layout.len].iter().any(|word| *word != 0)
     }
@@ -125,10 +133,12 @@ pub(super) struct KeyMut<'a> {
 }
 
 impl KeyMut<'_> {
+    #[inline]
     pub fn set_step(&mut self, steps: usize, origin: u32) {
         self.words[self.layout.step] = steps as u64 | u64::from(origin) << 32;
     }
 
+    #[inline]
     pub fn set_watch(&mut self, state: u32, fired: bool) {
         self.words[self.layout.watch] = u64::from(state) | if fired { FIRED } else { 0 };
     }
@@ -145,6 +155,7 @@ impl KeyMut<'_> {
         self.words[at] = self.words[at] & !(0xFF << shift) | u64::from(byte) << shift;
     }
 
+    #[inline]
     pub fn set_cools(&mut self, gate: usize, cools: bool) {
         put(&mut self.words[self.layout.cool..], gate, cools);
     }
@@ -232,6 +243,7 @@ impl Info {
             + self.excited.len() * size_of::<u64>()
     }
 
+    #[inline]
     pub fn row(&self, slot: Slot) -> usize {
         self.slots.iter().position(|it| *it == slot).map_or(0, |at| at + 1)
     }
@@ -245,17 +257,17 @@ impl Info {
         }
     }
 
-    /// Sets `least`, where something may fire from `due` of its least delay on.
-    pub fn waits(&mut self, plant: &Plant, key: Key<'_>, due: impl Fn(i64) -> i64) {
+    /// Sets `least`, where how much older an event is no longer counts from `old` of its least delay on.
+    pub fn waits(&mut self, plant: &Plant, key: Key<'_>, old: impl Fn(i64) -> i64) {
         self.least = vec![passed::EXACT; self.slots.len() + 1];
         for (slot, row) in self.slots.iter().zip(1..) {
             let least = match *slot {
-                Slot::Gate(_) => self.agents.iter().find(|agent| agent.row == row).map(|agent| due(agent.min)),
+                Slot::Gate(_) => self.agents.iter().find(|agent| agent.row == row).map(|agent| old(agent.min)),
                 // overtaking asks for strictly more than some least delays
-                Slot::Flight(wire, place) => Some(due(flight_delay(plant, key.values(), wire as usize, place).min) + 1),
+                Slot::Flight(wire, place) => Some(old(flight_delay(plant, key.values(), wire as usize, place).min) + 1),
                 // it must also be strictly after the step before
                 Slot::Since if key.skew() == 0 => match plant.steps.get(key.steps()).map(|step| step.place) {
-                    Some(PlantPlace::After(ticks)) => Some(due(ticks.min).max(1)),
+                    Some(PlantPlace::After(ticks)) => Some(old(ticks.min).max(1)),
                     _ => None,
                 },
                 _ => None,

@@ -51,7 +51,7 @@ impl Known {
         let number = self.infos.len() as u32;
         let key = Key { words, layout: found.layout };
         let mut info = key::info(plant, key, excited.to_vec(), watch.clocks(key.watch()));
-        info.waits(plant, key, |min| semantics.due(min));
+        info.waits(plant, key, |min| semantics.old(min));
         found.bytes += (words.len() * 8 + info.memory() + std::mem::size_of::<Joint>() + 64) as u64;
         self.before.push(self.last.insert(hash, number).unwrap_or(u32::MAX));
         self.infos.push(info);

@@ -58,8 +58,9 @@ pub(super) struct Kept {
     sum: i64,
     /// The sum of what [`needs`] asks of a zone that makes it needless: that of no such zone is less.
     needs: i64,
-    /// The least values of its first clocks, roughly.
-    corner: u64,
+    /// The same by row, roughly.
+    rows: u64,
+    needs_rows: u64,
 }
 
 /// The bounds of zones, one after the other.
@@ -74,10 +75,11 @@ pub(super) struct Bounds<C> {
     needed: Vec<C>,
     sum: i64,
     needs: i64,
-    corner: u64,
+    rows: u64,
+    needs_rows: u64,
     size: usize,
-    /// Of the greatest delay this many digits are more than a part of a corner holds.
-    coarse: u32,
+    /// What clocks are about as great as.
+    most: i64,
 }
 
 impl<C: Cell> Bounds<C> {
@@ -90,30 +92,29 @@ impl<C: Cell> Bounds<C> {
             needed: Vec::new(),
             sum: 0,
             needs: 0,
-            corner: 0,
+            rows: 0,
+            needs_rows: 0,
             size: 0,
-            coarse: (64 - (2 * most).leading_zeros()).saturating_sub(7),
+            most: most.max(1),
         }
     }
 
     /// Takes a zone to compare with others and to keep; `least` as for [`needs`]. False: its bounds do not fit.
     pub fn take(&mut self, zone: &Matrix, least: &[Code]) -> bool {
+        let size = zone.size;
+        self.size = size;
         self.entry.clear();
+        self.entry.extend(zone.bounds.iter().map(|code| C::of(*code)));
+        let fits = self.entry.iter().zip(&zone.bounds).fold(true, |fits, (cell, code)| fits & (cell.code() == *code));
         self.needed.clear();
-        (self.size, self.sum, self.needs) = (zone.size, 0, 0);
-        let mut fits = true;
-        self.corner = corner(&zone.bounds[..zone.size], self.coarse);
-        for (row, least) in zone.bounds.chunks(zone.size).zip(least) {
-            for (code, first) in row.iter().zip(&zone.bounds) {
-                let needed = needs(*code, *first, *least);
-                let (cell, need) = (C::of(*code), C::of(needed));
-                fits &= cell.code() == *code && need.code() == needed;
-                self.entry.push(cell);
-                self.needed.push(need);
-                self.sum += part(*code);
-                self.needs += part(needed);
-            }
+        for (row, least) in zone.bounds.chunks_exact(size).zip(least) {
+            // no less than the first bound of its column, so they fit if those do
+            let needed = row.iter().zip(&zone.bounds).map(|(code, first)| C::of(needs(*code, *first, *least)));
+            self.needed.extend(needed);
         }
+        let lane = Lane::of(self.most, size);
+        (self.sum, self.rows) = sums(&self.entry, size, lane);
+        (self.needs, self.needs_rows) = sums(&self.needed, size, lane);
         fits
     }
 
@@ -133,7 +134,8 @@ impl<C: Cell> Bounds<C> {
             Some(at) => self.cells[at..at + len].copy_from_slice(&self.entry),
             None => self.cells.extend_from_slice(&self.entry),
         }
-        (Kept { node, at, sum: self.sum, needs: self.needs, corner: self.corner }, free.is_none())
+        let (sum, needs, rows, needs_rows) = (self.sum, self.needs, self.rows, self.needs_rows);
+        (Kept { node, at, sum, needs, rows, needs_rows }, free.is_none())
     }
 
     /// Gives up the place of a zone of as many rows as the one that was taken.
@@ -160,12 +162,14 @@ impl<C: Cell> Bounds<C> {
 
     /// Can nothing come of it that does not come of that zone?
     pub fn needless(&self, kept: &Kept) -> bool {
-        self.needs <= kept.sum && inside(self.corner, kept.corner) && within(&self.needed, self.cells(kept))
+        self.needs <= kept.sum && inside(self.needs_rows, kept.rows) && within(&self.needed, self.cells(kept))
     }
 
     /// Can nothing come of that zone that does not come of it? `least` as for [`needs`].
     pub fn replaces(&self, kept: &Kept, least: &[Code]) -> bool {
-        kept.needs <= self.sum && inside(kept.corner, self.corner) && covers(&self.entry, self.cells(kept), self.size, least)
+        kept.needs <= self.sum
+            && inside(kept.needs_rows, self.rows)
+            && covers(&self.entry, self.cells(kept), self.size, least)
     }
 
     /// Joins it to that zone: to the least zone that holds both or, `widely`, with every bound given up that would have to
@@ -178,10 +182,7 @@ impl<C: Cell> Bounds<C> {
                 *cell = if widely { C::NONE } else { *other };
             }
         }
-        for (part, cell) in cells[..self.size].iter().enumerate().skip(1).take(8) {
-            kept.corner = kept.corner & !(LANE << (8 * (part - 1))) | lane(cell.code(), self.coarse) << (8 * (part - 1));
-        }
-        kept.sum = cells.iter().map(|cell| part(cell.code())).sum();
+        (kept.sum, kept.rows) = sums(cells, self.size, Lane::of(self.most, self.size));
     }
 }
 
@@ -191,19 +192,39 @@ fn part(code: Code) -> i64 {
     code.clamp(-(1 << 50), 1 << 50)
 }
 
-/// Seven bits of each byte.
-const LANE: u64 = 0x7F;
-
-/// The least value of a clock from its bound on 0 − x, roughly: more for less, at most 7 bits.
-#[inline]
-fn lane(code: Code, coarse: u32) -> u64 {
-    LANE - (1 - code >> coarse).clamp(0, LANE as i64) as u64
+/// Sums of rows in seven bits, roughly: a greater one is no less there.
+#[derive(Clone, Copy)]
+struct Lane {
+    bias: i64,
+    coarse: u32,
 }
 
-/// The least values of the first eight clocks from the first row of a zone, a byte a clock.
+impl Lane {
+    /// For so many bounds of about this size.
+    #[inline]
+    fn of(most: i64, size: usize) -> Lane {
+        let bias = 2 * most * size as i64;
+        Lane { bias, coarse: (64 - (2 * bias).leading_zeros()).saturating_sub(7) }
+    }
+
+    #[inline]
+    fn of_sum(self, sum: i64) -> u64 {
+        (sum.saturating_add(self.bias) >> self.coarse).clamp(0, 0x7F) as u64
+    }
+}
+
+/// The sum of some bounds, and those of the first eight rows, a byte a row.
 #[inline]
-fn corner(first: &[Code], coarse: u32) -> u64 {
-    first.iter().skip(1).take(8).zip(0..).fold(0, |all, (code, at)| all | lane(*code, coarse) << (8 * at))
+fn sums<C: Cell>(cells: &[C], size: usize, lane: Lane) -> (i64, u64) {
+    let (mut all, mut rows) = (0, 0);
+    for (at, row) in cells.chunks_exact(size).enumerate() {
+        let sum: i64 = row.iter().map(|cell| part(cell.code())).sum();
+        all += sum;
+        if at < 8 {
+            rows |= lane.of_sum(sum) << (8 * at);
+        }
+    }
+    (all, rows)
 }
 
 /// Is no byte of `a` greater than that of `b`? Their highest bits are 0.

@@ -58,6 +58,7 @@ impl Matrix {
     }
 
     /// Takes over the bounds of a zone.
+    #[inline]
     pub fn load(&mut self, size: usize, bounds: &[Code]) {
         self.size = size;
         self.bounds.clear();
@@ -102,6 +103,7 @@ impl Matrix {
     }
 
     /// xᵢ is at least c. False: nothing is left.
+    #[inline]
     pub fn at_least(&mut self, i: usize, c: i64) -> bool {
         self.bound(0, i, at_most(-c))
     }
@@ -125,11 +127,9 @@ impl Matrix {
     }
 
     /// Lets time pass as long as every listed clock keeps its bound. The bounds must hold now.
+    #[inline]
     pub fn elapse(&mut self, limits: &[(usize, Code)]) {
         let n = self.size;
-        for i in 1..n {
-            self.bounds[i * n] = FREE;
-        }
         for i in 1..n {
             let mut most = FREE;
             for (clock, limit) in limits {
@@ -166,16 +166,15 @@ impl Matrix {
     }
 
     /// Puts clocks in a new order into `into`: new clock k + 1 is old clock `from[k]`, or begins at 0 where that is 0.
+    #[inline]
     pub fn gather(&self, from: &[usize], into: &mut Matrix) {
         let n = from.len() + 1;
         into.size = n;
         into.bounds.clear();
-        let old = |k: usize| if k == 0 { 0 } else { from[k - 1] };
-        for i in 0..n {
-            let row = old(i) * self.size;
-            for j in 0..n {
-                into.bounds.push(self.bounds[row + old(j)]);
-            }
+        for old in std::iter::once(&0).chain(from) {
+            let row = &self.bounds[old * self.size..(old + 1) * self.size];
+            into.bounds.push(row[0]);
+            into.bounds.extend(from.iter().map(|column| row[*column]));
         }
     }
 }
