@@ -132,6 +132,10 @@ fn answer(asked: &str) {
     }
     let rate = |number: u64| format!("{:.2} M", number as f64 / fastest / 1e6);
     let peak = peak.map_or("not told".to_string(), |peak| format!("{peak:.1}"));
+    if way == Way::Cycles {
+        println!("{:>11} {:>9} {fastest:>9.4} {:>8} {:>8} {peak:>9}", "", "", "", "");
+        return;
+    }
     println!("{zones:>11} {met:>9} {fastest:>9.4} {:>8} {:>8} {peak:>9}", rate(zones), rate(met));
 }
 

@@ -148,10 +148,11 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
     fn join(&mut self, number: u32, node: u32) {
         let zone = &mut self.known.zones[number as usize][0];
         let often = self.joins.get(&node).copied().unwrap_or(0);
-        // once bounds were given up the zone may not be closed
-        let grows = !if often > JOINS { self.kept.lies_in(zone) } else { self.kept.needless(zone) };
+        // once bounds were given up zones may not be closed, and nothing is known of twins
+        let grows = !if self.widened { self.kept.lies_in(zone) } else { self.kept.needless(zone) };
         if grows {
             self.joins.insert(node, often + 1);
+            self.widened |= often >= JOINS;
             self.kept.join(zone, often >= JOINS);
             self.open.push_back(node);
         }

@@ -85,6 +85,8 @@ pub(super) struct Explorer<'a, W, S, C> {
     expanded: u64,
     /// How often zones were joined to that of a node.
     pub joins: FxHashMap<u32, u32>,
+    /// Were bounds given up in joining?
+    pub widened: bool,
     /// The zone that is expanded.
     pub base: Matrix,
     // working memory
@@ -118,6 +120,7 @@ impl<'a, W: Watch, S: Semantics, C: Cell> Explorer<'a, W, S, C> {
             fits: true,
             expanded: 0,
             joins: FxHashMap::default(),
+            widened: false,
             base: Matrix::default(),
             work: Matrix::default(),
             entry: Matrix::default(),

@@ -317,7 +317,7 @@ mod tests {
             })
         };
         let points: Vec<[i64; 2]> = (0..=most * fine).flat_map(|x| (0..=most * fine).map(move |y| [x, y])).collect();
-        let (mut covers, mut more) = (0, 0);
+        let (mut covered, mut more) = (0, 0);
         for exact in [[false, false], [false, true], [true, true]] {
             let of = |k: usize| if exact[k] { EXACT } else { at_most(limits[k]) };
             let least = [EXACT, of(0), of(1)];
@@ -339,12 +339,12 @@ mod tests {
                     assert!(bounds.take(&Matrix { size: 3, bounds: b.clone() }, &least));
                     assert_eq!(bounds.replaces(&of_a, &least), want);
                     assert_eq!(covers(b, a, 3, &least), want, "{a:?} {b:?} {least:?}");
-                    covers += u32::from(want);
+                    covered += u32::from(want);
                     more += u32::from(want && !within(a, b));
                 }
             }
         }
-        assert!(covers > 300 && more > 50, "{covers} {more}");
+        assert!(covered > 300 && more > 50, "{covered} {more}");
     }
 
     #[test]
