@@ -64,6 +64,8 @@ enum Rule {
     Later,
     /// Excites again at once.
     Cools,
+    /// Takes an event for old from its beginning on.
+    Old,
 }
 
 type Rules = (Rule, Mode);
@@ -74,6 +76,9 @@ const RIGHT: Rules = (Rule::Right, TOGETHER);
 impl Semantics for Rule {
     fn due(&self, min: i64) -> i64 {
         if *self == Rule::Due { min - 1 } else { Exact.due(min) }
+    }
+    fn old(&self, min: i64) -> i64 {
+        if *self == Rule::Old { 0 } else { Exact.old(min) }
     }
     fn cancelled(&self, max: i64) -> Code {
         if *self == Rule::Cancelled { zone::at_most(max) } else { Exact.cancelled(max) }
@@ -519,7 +524,8 @@ fn a_weaker_rule_is_noticed() {
         Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true },
     ];
     let apart = Mode { joint: false, ..TOGETHER };
-    let weaker = [Rule::Due, Rule::Cancelled, Rule::Lasts, Rule::Later, Rule::Cools].map(|rule| (rule, TOGETHER));
+    let weaker =
+        [Rule::Due, Rule::Cancelled, Rule::Lasts, Rule::Later, Rule::Cools, Rule::Old].map(|rule| (rule, TOGETHER));
     for rules in weaker.into_iter().chain([(Rule::Right, apart)]) {
         let mut met = Met::default();
         let noticed = (0..3000).position(|stream| {
@@ -529,4 +535,27 @@ fn a_weaker_rule_is_noticed() {
         });
         assert!(noticed.is_some(), "{rules:?}");
     }
+}
+
+/// One zone a key holds whatever the exact exploration finds, and seldom more.
+#[test]
+fn a_hull_holds_no_less() {
+    let kinds = [
+        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: false },
+        Kind { wires: 0.5, timed: true, power_up: false, waits: false, ties: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true },
+    ];
+    let hull = Mode { merge: stillgate::proof::Merge::Hull, ..TOGETHER };
+    let (mut met, mut cases, mut more) = (Met::default(), 0, 0);
+    for stream in 0..scaled(1000) {
+        for (number, case) in kinds.iter().flat_map(|kind| random_case(43, stream, *kind)).enumerate() {
+            let exact = case.said(&RIGHT, false, &mut met).unwrap();
+            let Ok(held) = case.said(&(Rule::Right, hull), false, &mut met) else { continue };
+            cases += 1;
+            let moves = exact.moves.iter().zip(&held.moves).all(|(exact, held)| exact.is_subset(held));
+            assert!(exact.rests.is_subset(&held.rests) && moves, "stream {stream}, case {number}");
+            more += u64::from(exact.rests != held.rests || exact.moves != held.moves);
+        }
+    }
+    assert!(cases > scaled(2000) && more * 20 < cases, "{cases} {more}");
 }

@@ -13,7 +13,7 @@ pub const NOWHERE: u32 = u32::MAX;
 /// What is done with a zone whose key is known.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub enum Merge {
-    /// Dropped if it lies in one that is known: exact.
+    /// Dropped if nothing can come of it that does not come of one that is known: exact.
     #[default]
     Inclusion,
     /// Joined to the one zone of the key: holds all that can happen, and perhaps more.
@@ -115,6 +115,8 @@ pub struct Explored {
     pub ended: Ended,
     /// Zones that were kept.
     pub zones: u64,
+    /// Zones that were come by, those included that were known or made needless by others.
+    pub met: u64,
     /// Bytes of zones and keys.
     pub bytes: u64,
     /// States at rest, each with the node that led to it first.
@@ -137,6 +139,7 @@ impl Explored {
         Explored {
             ended: Ended::Complete,
             zones: 0,
+            met: 0,
             bytes: 0,
             rests: BTreeMap::new(),
             states: Vec::new(),
@@ -149,6 +152,7 @@ impl Explored {
         }
     }
 
+    #[inline]
     pub(super) fn key(&self, number: u32) -> Key<'_> {
         let at = number as usize * self.layout.len;
         Key { words: &self.keys[at..at + self.layout.len], layout: self.layout }

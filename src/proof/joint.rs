@@ -6,6 +6,8 @@
 //! Irreducible sets hang together: of any two parts one reads the other, or an excited gate reads both. And each member,
 //! fired alone, would disable something: else it could go first (a step apart: only with it can others go).
 
+use std::rc::Rc;
+
 use rustc_hash::{FxHashMap, FxHashSet};
 
 use super::key::{Agent, Info, Key, Mover, bit, excited, put};
@@ -20,24 +22,29 @@ const SETS: usize = 20_000;
 #[derive(Clone, Debug, Default)]
 pub(super) struct Joint {
     known: FxHashMap<u64, bool>,
-    asked: FxHashSet<u64>,
+    /// For each mask that was asked for the sets inside it, and whether those are all.
+    asked: FxHashMap<u64, (Rc<[u64]>, bool)>,
     /// For each agent the gates (as agents) that are no longer excited once it has fired alone.
     victims: Vec<u64>,
 }
 
 impl Joint {
-    /// The irreducible sets found.
-    pub fn sets(&self) -> Vec<u64> {
-        let mut sets: Vec<u64> = self.known.iter().filter(|(_, keep)| **keep).map(|(set, _)| *set).collect();
+    /// The irreducible sets among the agents of this mask, and whether there may be no more than these.
+    pub fn sets(&mut self, plant: &Plant, key: Key<'_>, info: &mut Info, enabled: u64) -> (Rc<[u64]>, bool) {
+        if let Some(found) = self.asked.get(&enabled) {
+            return found.clone();
+        }
+        let complete = self.look(plant, key, info, enabled);
+        let inside = self.known.iter().filter(|(set, keep)| **keep && **set & !enabled == 0);
+        let mut sets: Vec<u64> = inside.map(|(set, _)| *set).collect();
         sets.sort_unstable();
-        sets
+        let found = (Rc::from(sets), complete);
+        self.asked.insert(enabled, found.clone());
+        found
     }
 
-    /// Finds those among the agents of this mask. False: there may be more than were looked at.
-    pub fn prepare(&mut self, plant: &Plant, key: Key<'_>, info: &mut Info, enabled: u64) -> bool {
-        if !self.asked.insert(enabled) {
-            return true;
-        }
+    /// Looks for those among the agents of this mask. False: there may be more than were looked at.
+    fn look(&mut self, plant: &Plant, key: Key<'_>, info: &mut Info, enabled: u64) -> bool {
         if info.near.is_empty() {
             info.near = near(plant, info, key);
         }

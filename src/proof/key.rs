@@ -1,5 +1,6 @@
 //! The discrete part of an explored state, as words: values, step, what is on its way, what a watch remembers.
 
+use super::passed;
 use super::plant::{Plant, PlantPlace, Ticks};
 use super::zone::{self, Code};
 
@@ -68,20 +69,24 @@ pub(super) fn put(words: &mut [u64], at: usize, value: bool) {
 
 impl<'a> Key<'a> {
     /// The values of all signals.
+    #[inline]
     pub fn values(&self) -> &'a [u64] {
         &self.words[..self.layout.values]
     }
 
     /// Steps taken.
+    #[inline]
     pub fn steps(&self) -> usize {
         self.words[self.layout.step] as u32 as usize
     }
 
     /// The number of the state at rest in which the present window began; `NOWHERE` if it did not begin at rest.
+    #[inline]
     pub fn origin(&self) -> u32 {
         (self.words[self.layout.step] >> 32) as u32
     }
 
+    #[inline]
     pub fn watch(&self) -> u32 {
         self.words[self.layout.watch] as u32
     }
@@ -91,6 +96,7 @@ impl<'a> Key<'a> {
         self.words[self.layout.watch] & FIRED != 0
     }
 
+    #[inline]
     pub fn skew(&self) -> u64 {
         self.words[self.layout.skew]
     }
@@ -99,6 +105,7 @@ impl<'a> Key<'a> {
         (self.words[self.layout.flights + wire / 8] >> (8 * (wire % 8))) as u8
     }
 
+    #[inline]
     pub fn flights(&self, wire: usize) -> u8 {
         self.of_wire(wire) & !APART
     }
@@ -108,10 +115,12 @@ impl<'a> Key<'a> {
         self.of_wire(wire) & APART != 0
     }
 
+    #[inline]
     pub fn cools(&self, gate: usize) -> bool {
         bit(&self.words[self.layout.cool..], gate)
     }
 
+    #[inline]
     pub fn any_cools(&self) -> bool {
         self.words[self.layout.cool..self.layout.len].iter().any(|word| *word != 0)
     }
@@ -124,10 +133,12 @@ pub(super) struct KeyMut<'a> {
 }
 
 impl KeyMut<'_> {
+    #[inline]
     pub fn set_step(&mut self, steps: usize, origin: u32) {
         self.words[self.layout.step] = steps as u64 | u64::from(origin) << 32;
     }
 
+    #[inline]
     pub fn set_watch(&mut self, state: u32, fired: bool) {
         self.words[self.layout.watch] = u64::from(state) | if fired { FIRED } else { 0 };
     }
@@ -144,6 +155,7 @@ impl KeyMut<'_> {
         self.words[at] = self.words[at] & !(0xFF << shift) | u64::from(byte) << shift;
     }
 
+    #[inline]
     pub fn set_cools(&mut self, gate: usize, cools: bool) {
         put(&mut self.words[self.layout.cool..], gate, cools);
     }
@@ -214,13 +226,54 @@ pub(super) struct Info {
     pub rest: bool,
     /// Row of the first clock of the watch.
     pub watch_row: usize,
-    /// Is it a timed step that comes next?
-    pub timed: bool,
+    /// For each row the least delay that its clock waits for (2L + 1), as far as it may count whether that is over and no
+    /// more; else [`passed::EXACT`].
+    pub least: Vec<Code>,
 }
 
 impl Info {
+    /// Bytes that it takes.
+    pub fn memory(&self) -> usize {
+        use std::mem::size_of;
+        size_of::<Info>()
+            + self.slots.len() * size_of::<Slot>()
+            + self.agents.len() * (size_of::<Agent>() + size_of::<u64>())
+            + self.limits.len() * size_of::<(usize, Code)>()
+            + self.least.len() * size_of::<Code>()
+            + self.excited.len() * size_of::<u64>()
+    }
+
+    #[inline]
     pub fn row(&self, slot: Slot) -> usize {
         self.slots.iter().position(|it| *it == slot).map_or(0, |at| at + 1)
+    }
+
+    /// As [`Info::row`], looking first behind the row that was found before: most clocks stay in order.
+    #[inline]
+    pub fn row_after(&self, slot: Slot, before: usize) -> usize {
+        match self.slots.get(before) {
+            Some(it) if *it == slot => before + 1,
+            _ => self.row(slot),
+        }
+    }
+
+    /// Sets `least`, where how much older an event is no longer counts from `old` of its least delay on.
+    pub fn waits(&mut self, plant: &Plant, key: Key<'_>, old: impl Fn(i64) -> i64) {
+        self.least = vec![passed::EXACT; self.slots.len() + 1];
+        for (slot, row) in self.slots.iter().zip(1..) {
+            let least = match *slot {
+                Slot::Gate(_) => self.agents.iter().find(|agent| agent.row == row).map(|agent| old(agent.min)),
+                // overtaking asks for strictly more than some least delays
+                Slot::Flight(wire, place) => Some(old(flight_delay(plant, key.values(), wire as usize, place).min) + 1),
+                // it must also be strictly after the step before
+                Slot::Since if key.skew() == 0 => match plant.steps.get(key.steps()).map(|step| step.place) {
+                    Some(PlantPlace::After(ticks)) => Some(old(ticks.min).max(1)),
+                    _ => None,
+                },
+                _ => None,
+            };
+            self.least[row] = least.map_or(passed::EXACT, zone::at_most);
+        }
     }
 }
 
@@ -269,7 +322,6 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
     let place = plant.steps.get(taken).map(|step| step.place);
     let skewed = key.skew() != 0;
     let timed = matches!(place, Some(PlantPlace::At(_) | PlantPlace::After(_)));
-    info.timed = timed;
     if skewed || timed {
         info.slots.push(Slot::Since);
     }

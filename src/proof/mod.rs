@@ -1,19 +1,24 @@
 //! All delays in their ranges at once: bounded-delay verdicts by zones.
 
+mod arriving;
 mod claim;
 mod cycles;
 mod explore;
 mod explored;
+mod firing;
 mod goals;
 mod joint;
 mod key;
+mod known;
 mod oscillations;
 mod outcomes;
+mod passed;
 mod plant;
 mod prove;
 mod semantics;
 pub mod simplex;
 mod system;
+mod together;
 mod watch;
 mod watches;
 mod windows;

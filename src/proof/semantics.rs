@@ -9,6 +9,10 @@ pub trait Semantics {
     fn due(&self, min: i64) -> i64 {
         min
     }
+    /// From what age on it no longer counts how much older an event with this least delay is.
+    fn old(&self, min: i64) -> i64 {
+        min
+    }
     /// How old the event of a gate with this greatest delay may be when it is cancelled: at its deadline it would have
     /// fired in this very batch.
     fn cancelled(&self, max: i64) -> zone::Code {

@@ -73,7 +73,8 @@ pub struct Arrival<'a> {
     pub rest: bool,
     /// Steps taken.
     pub steps: usize,
-    /// The zone on arrival, cut to those cases in which time goes on before the next batch.
+    /// The zone on arrival, cut to those cases in which time goes on before the next batch; whole if the watch says that it
+    /// does not look at it.
     pub zone: &'a Matrix,
     /// The row of the watch's first clock.
     pub row: usize,
@@ -91,6 +92,11 @@ pub trait Watch {
     /// A block of changes: the next state, and where the clocks that run in it come from.
     fn block(&self, state: u32, block: &Block<'_>, hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]);
 
+    /// Does [`Watch::arrive`] look at the zone? Without, it need not be worked out.
+    fn measures(&self) -> bool {
+        true
+    }
+
     /// A state that lasts was arrived at.
     fn arrive(&self, _state: u32, _arrival: &Arrival<'_>, _hit: &mut dyn FnMut(u32)) {}
 
@@ -106,6 +112,10 @@ pub trait Watch {
 pub struct Nothing;
 
 impl Watch for Nothing {
+    fn measures(&self) -> bool {
+        false
+    }
+
     fn clocks(&self, _state: u32) -> u8 {
         0
     }

@@ -58,6 +58,7 @@ impl Matrix {
     }
 
     /// Takes over the bounds of a zone.
+    #[inline]
     pub fn load(&mut self, size: usize, bounds: &[Code]) {
         self.size = size;
         self.bounds.clear();
@@ -86,6 +87,10 @@ impl Matrix {
                 continue;
             }
             let over = plus(to_i, code);
+            // what does not come nearer to j comes nearer to nothing behind it
+            if over >= self.bounds[a * n + j] {
+                continue;
+            }
             for b in 0..n {
                 let through = plus(over, self.bounds[j * n + b]);
                 let entry = &mut self.bounds[a * n + b];
@@ -98,8 +103,16 @@ impl Matrix {
     }
 
     /// xᵢ is at least c. False: nothing is left.
+    #[inline]
     pub fn at_least(&mut self, i: usize, c: i64) -> bool {
         self.bound(0, i, at_most(-c))
+    }
+
+    /// Would something be left with an upper bound on xᵢ? Several such bounds leave something if each of them does: they all
+    /// end at the constant, so no two of them are part of one contradiction.
+    #[inline]
+    pub fn allows(&self, i: usize, code: Code) -> bool {
+        plus(self.bounds[i], code) >= AT_MOST_ZERO
     }
 
     /// Could xᵢ be at least c?
@@ -114,11 +127,9 @@ impl Matrix {
     }
 
     /// Lets time pass as long as every listed clock keeps its bound. The bounds must hold now.
+    #[inline]
     pub fn elapse(&mut self, limits: &[(usize, Code)]) {
         let n = self.size;
-        for i in 1..n {
-            self.bounds[i * n] = FREE;
-        }
         for i in 1..n {
             let mut most = FREE;
             for (clock, limit) in limits {
@@ -155,16 +166,15 @@ impl Matrix {
     }
 
     /// Puts clocks in a new order into `into`: new clock k + 1 is old clock `from[k]`, or begins at 0 where that is 0.
+    #[inline]
     pub fn gather(&self, from: &[usize], into: &mut Matrix) {
         let n = from.len() + 1;
         into.size = n;
         into.bounds.clear();
-        let old = |k: usize| if k == 0 { 0 } else { from[k - 1] };
-        for i in 0..n {
-            let row = old(i) * self.size;
-            for j in 0..n {
-                into.bounds.push(self.bounds[row + old(j)]);
-            }
+        for old in std::iter::once(&0).chain(from) {
+            let row = &self.bounds[old * self.size..(old + 1) * self.size];
+            into.bounds.push(row[0]);
+            into.bounds.extend(from.iter().map(|column| row[*column]));
         }
     }
 }
@@ -173,23 +183,6 @@ impl Matrix {
 #[inline]
 pub fn within(a: &[Code], b: &[Code]) -> bool {
     a.iter().zip(b).all(|(a, b)| a <= b)
-}
-
-/// The least zone that holds both, into `a`. Bounds of two closed matrices joined are closed.
-pub fn hull(a: &mut [Code], b: &[Code]) {
-    for (a, b) in a.iter_mut().zip(b) {
-        *a = (*a).max(*b);
-    }
-}
-
-/// As [`hull`], but a bound that would have to give way is given up, so that joining comes to an end (widening; Cousot and
-/// Cousot 1977). The matrix may not be closed then: it holds no less, and perhaps more than it need.
-pub fn widen(a: &mut [Code], b: &[Code]) {
-    for (a, b) in a.iter_mut().zip(b) {
-        if *b > *a {
-            *a = FREE;
-        }
-    }
 }
 
 #[cfg(test)]
@@ -231,18 +224,5 @@ mod tests {
             (next.at(0, 1), next.at(2, 0), next.at(0, 2), next.at(1, 2)),
             (at_most(-7), at_most(3), at_most(-3), at_most(5))
         );
-    }
-
-    #[test]
-    fn the_hull_holds_both() {
-        let mut a = Matrix::zero(1);
-        a.elapse(&[(1, at_most(3))]);
-        let mut b = Matrix::zero(1);
-        b.elapse(&[(1, at_most(8))]);
-        assert!(b.at_least(1, 6));
-        let mut both = a.bounds.clone();
-        hull(&mut both, &b.bounds);
-        assert!(within(&a.bounds, &both) && within(&b.bounds, &both));
-        assert_eq!(both[2], at_most(8));
     }
 }

@@ -8,6 +8,10 @@ use crate::proof::watch::{Block, Fate, SAME, Watch};
 pub struct BeforeRest;
 
 impl Watch for BeforeRest {
+    fn measures(&self) -> bool {
+        false
+    }
+
     fn clocks(&self, _state: u32) -> u8 {
         0
     }

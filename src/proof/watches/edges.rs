@@ -45,6 +45,10 @@ pub struct Apart {
 }
 
 impl Watch for Apart {
+    fn measures(&self) -> bool {
+        false
+    }
+
     fn clocks(&self, state: u32) -> u8 {
         (state & 3).count_ones() as u8
     }
@@ -102,6 +106,10 @@ pub struct Answered {
 }
 
 impl Watch for Answered {
+    fn measures(&self) -> bool {
+        false
+    }
+
     fn clocks(&self, state: u32) -> u8 {
         (state & 1) as u8
     }
@@ -154,6 +162,10 @@ pub struct Width {
 }
 
 impl Watch for Width {
+    fn measures(&self) -> bool {
+        false
+    }
+
     fn clocks(&self, state: u32) -> u8 {
         (state & 1) as u8
     }

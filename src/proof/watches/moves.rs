@@ -38,6 +38,10 @@ impl Moves {
 }
 
 impl Watch for Moves {
+    fn measures(&self) -> bool {
+        false
+    }
+
     fn clocks(&self, _state: u32) -> u8 {
         0
     }

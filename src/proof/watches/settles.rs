@@ -76,6 +76,10 @@ impl Late {
 }
 
 impl Watch for Late {
+    fn measures(&self) -> bool {
+        false
+    }
+
     fn clocks(&self, state: u32) -> u8 {
         u8::from(state & Self::ASKED != 0)
     }

@@ -18,6 +18,10 @@ pub struct Shows {
 }
 
 impl Watch for Shows {
+    fn measures(&self) -> bool {
+        false
+    }
+
     fn clocks(&self, _state: u32) -> u8 {
         0
     }
@@ -47,6 +51,10 @@ pub struct ShowsLonger {
 }
 
 impl Watch for ShowsLonger {
+    fn measures(&self) -> bool {
+        false
+    }
+
     fn clocks(&self, state: u32) -> u8 {
         u8::from(state & 1 == 1)
     }

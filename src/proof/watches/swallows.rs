@@ -11,6 +11,10 @@ pub struct Swallows {
 }
 
 impl Watch for Swallows {
+    fn measures(&self) -> bool {
+        false
+    }
+
     fn clocks(&self, _state: u32) -> u8 {
         0
     }

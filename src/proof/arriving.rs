@@ -1,0 +1,181 @@
+//! What is done with a key and zone that were arrived at: they are judged, time passes, and the zone is kept if it is new.
+
+use super::explore::Explorer;
+use super::explored::{Ended, Merge, Node, Rest};
+use super::key::{KeyMut, Mover};
+use super::passed::{Cell, Kept};
+use super::plant::PlantPlace;
+use super::semantics::Semantics;
+use super::watch::{Arrival, Watch};
+
+/// Joins of one zone until what still grows is given up.
+const JOINS: u32 = 32;
+
+impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
+    /// A key was arrived at, with the zone in `entry` and the hits of the block.
+    pub fn arrive(&mut self, number: u32, parent: u32, movers: &[Mover]) {
+        let info = &self.known.infos[number as usize];
+        let key = self.found.key(number);
+        let (state, rest, steps, row) = (key.watch(), info.rest, key.steps(), info.watch_row);
+        let lasting = info.limits.iter().all(|(row, most)| self.entry.allows(*row, self.semantics.lasts(*most)));
+        if lasting {
+            let mut zone = &self.entry;
+            if self.watch.measures() {
+                self.lasting.load(self.entry.size, &self.entry.bounds);
+                for (row, most) in &info.limits {
+                    self.lasting.bound(*row, 0, self.semantics.lasts(*most));
+                }
+                zone = &self.lasting;
+            }
+            let arrival = Arrival { plant: self.plant, values: key.values(), rest, steps, zone, row };
+            let hits = &mut self.hits;
+            self.watch.arrive(state, &arrival, &mut |hit| hits.push(hit));
+        }
+        let rested = (rest && lasting).then(|| {
+            let (values, origin) = (key.values().to_vec(), key.origin());
+            (values, origin)
+        });
+        let rested =
+            rested.map(|(values, origin)| Rest { steps: steps as u32, origin, state: self.state_number(&values) });
+
+        // time passes, but for a step that waits for rest
+        let mut number = number;
+        let waits = rest && matches!(self.plant.steps.get(steps).map(|step| step.place), Some(PlantPlace::Rest(_)));
+        let mut goes_on = true;
+        if !waits {
+            let info = &self.known.infos[number as usize];
+            self.entry.elapse(&info.limits);
+            let hits = &mut self.hits;
+            let (new_state, left) = self.watch.elapsed(state, &mut self.entry, row, &mut |hit| hits.push(hit));
+            goes_on = left;
+            if left && new_state != state {
+                number = self.with_watch(number, new_state);
+            }
+        }
+        let node = match goes_on {
+            true => self.keep(number, parent, movers),
+            false => None,
+        };
+        // what was found is kept with a way to it, even if the zone is not
+        let first = rested.is_some_and(|rest| !self.found.rests.contains_key(&rest))
+            || self.hits.iter().any(|hit| !self.found.hits.contains_key(hit));
+        let node = match node {
+            None if first => Some(self.push(number, parent, movers, false)),
+            node => node,
+        };
+        if let Some(node) = node {
+            if let Some(rest) = rested {
+                self.found.rests.entry(rest).or_insert(node);
+            }
+            for hit in self.hits.drain(..) {
+                self.found.hits.entry(hit).or_insert(node);
+            }
+        }
+        if self.mode.first_hit && !self.found.hits.is_empty() {
+            self.end(Ended::Hit);
+        }
+    }
+
+    /// The key with another state of the watch; `entry` gets its clocks.
+    fn with_watch(&mut self, number: u32, state: u32) -> u32 {
+        self.words.copy_from_slice(self.found.key(number).words);
+        let fired = self.found.key(number).fired();
+        KeyMut { words: &mut self.words, layout: self.layout }.set_watch(state, fired);
+        self.excited.clone_from(&self.known.infos[number as usize].excited);
+        let other = self.intern();
+        let (old, new) = (&self.known.infos[number as usize], &self.known.infos[other as usize]);
+        self.from.clear();
+        self.from.extend(new.slots.iter().map(|slot| old.row(*slot)));
+        std::mem::swap(&mut self.work, &mut self.entry);
+        self.work.gather(&self.from, &mut self.entry);
+        other
+    }
+
+    /// Keeps the zone in `entry`, unless it is needless. Returns its node, if it is a new one.
+    fn keep(&mut self, number: u32, parent: u32, movers: &[Mover]) -> Option<u32> {
+        self.found.met += 1;
+        let least = &self.known.infos[number as usize].least;
+        if !self.kept.take(&self.entry, least) {
+            self.fits = false;
+            return None;
+        }
+        let zones = &mut self.known.zones[number as usize];
+        let known = match self.mode.merge {
+            Merge::Equality => zones.iter().find(|zone| self.kept.is(zone)).copied(),
+            Merge::Inclusion => zones.iter().find(|zone| self.kept.needless(zone)).copied(),
+            Merge::Hull => zones.first().copied(),
+        };
+        if let Some(zone) = known {
+            if self.mode.edges && parent != u32::MAX {
+                self.found.edges.push((parent, zone.node));
+            }
+            if self.mode.merge == Merge::Hull {
+                self.join(number, zone.node);
+            }
+            return None;
+        }
+        let next = self.found.nodes.len() as u32;
+        if self.mode.merge == Merge::Inclusion {
+            let (kept, found, edges) = (&mut self.kept, &mut self.found, self.mode.edges);
+            zones.retain(|zone| {
+                if !kept.replaces(zone, least) {
+                    return true;
+                }
+                kept.give_up(zone);
+                found.nodes[zone.node as usize].gone = true;
+                if edges {
+                    // it leads on as the other does, which is the next node
+                    found.edges.push((zone.node, next));
+                }
+                false
+            });
+        }
+        let node = self.push(number, parent, movers, true);
+        if self.mode.edges && parent != u32::MAX {
+            self.found.edges.push((parent, node));
+        }
+        self.open.push_back(node);
+        self.found.zones += 1;
+        if self.found.zones > self.budget.zones {
+            self.end(Ended::Zones);
+        } else if self.found.bytes > self.budget.bytes {
+            self.end(Ended::Bytes);
+        }
+        Some(node)
+    }
+
+    /// Joins the zone that was taken to the one of a key, which is looked at again if it grows.
+    fn join(&mut self, number: u32, node: u32) {
+        let zone = &mut self.known.zones[number as usize][0];
+        let often = self.joins.get(&node).copied().unwrap_or(0);
+        // once bounds were given up zones may not be closed, and nothing is known of twins
+        let grows = !if self.widened { self.kept.lies_in(zone) } else { self.kept.needless(zone) };
+        if grows {
+            self.joins.insert(node, often + 1);
+            self.widened |= often >= JOINS;
+            self.kept.join(zone, often >= JOINS);
+            self.open.push_back(node);
+        }
+    }
+
+    /// A node of its own for what was arrived at. Its zone is kept only if it has to be expanded.
+    fn push(&mut self, key: u32, parent: u32, movers: &[Mover], expanded: bool) -> u32 {
+        let node = self.found.nodes.len() as u32;
+        let first = self.found.movers.len() as u32;
+        self.found.movers.extend_from_slice(movers);
+        self.found.bytes += (std::mem::size_of::<Node>() + std::mem::size_of_val(movers)) as u64;
+        let mut at = 0;
+        if expanded {
+            let (kept, more) = self.kept.keep(node);
+            at = kept.at;
+            self.known.zones[key as usize].push(kept);
+            if more {
+                let cells = self.entry.bounds.len() * std::mem::size_of::<C>();
+                self.found.bytes += (cells + std::mem::size_of::<Kept>()) as u64;
+            }
+        }
+        let fired = (first, self.found.movers.len() as u32);
+        self.found.nodes.push(Node { key, at, parent, fired, gone: !expanded });
+        node
+    }
+}

@@ -1,0 +1,316 @@
+//! One firing: what it asks of the clocks, what it changes, and which clocks run after it.
+
+use super::explore::Explorer;
+use super::explored::{Ended, NOWHERE};
+use super::key::{self, Agent, Key, KeyMut, Mover, Slot, bit, put};
+use super::passed::Cell;
+use super::plant::{Plant, PlantPlace};
+use super::semantics::Semantics;
+use super::watch::{Block, Fate, Watch};
+use super::zone;
+
+/// What fires out of a key.
+#[derive(Clone, Copy)]
+struct Firing<'m> {
+    key: u32,
+    movers: &'m [Mover],
+    /// Steps taken before it.
+    steps: usize,
+    /// Steps that are part of it.
+    stepping: usize,
+}
+
+impl Firing<'_> {
+    fn has(&self, mover: Mover) -> bool {
+        self.movers.contains(&mover)
+    }
+
+    /// How many of the changes under way on a wire are overtaken.
+    fn overtaken(&self, wire: u32) -> u8 {
+        let over = self.movers.iter().find_map(|mover| match mover {
+            Mover::Overtaking(other, over) if *other == wire => Some(*over),
+            _ => None,
+        });
+        over.unwrap_or(0)
+    }
+}
+
+/// The greatest delay of an excited gate.
+fn gate_max(plant: &Plant, values: &[u64], gate: usize) -> i64 {
+    plant.gates[gate].delay[usize::from(!bit(values, plant.inputs + gate))].max
+}
+
+impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
+    /// Fires movers together out of the zone in `base`; `words` has the values after it.
+    pub fn fire_so(&mut self, node: u32, agents: &[Agent], movers: &[Mover], stepping: usize) {
+        let key = self.found.nodes[node as usize].key;
+        let firing = Firing { key, movers, steps: self.found.key(key).steps(), stepping };
+        self.work.load(self.base.size, &self.base.bounds);
+        if self.is_due(&firing, agents) && self.set_out(&firing) && self.excite(&firing) && self.is_cool(&firing) {
+            self.cool(&firing);
+            let (number, fates) = self.next_key(&firing);
+            self.next_clocks(&firing, number, fates);
+            self.arrive(number, node, movers);
+        }
+    }
+
+    /// Cuts the zone to where all of it is due. False: nothing is left.
+    fn is_due(&mut self, firing: &Firing<'_>, agents: &[Agent]) -> bool {
+        let (plant, steps) = (self.plant, firing.steps);
+        let info = &self.known.infos[firing.key as usize];
+        if agents.is_empty()
+            && let PlantPlace::Rest(wait) = plant.steps[steps].place
+        {
+            self.work.shift(wait);
+        }
+        for agent in agents {
+            let able = match agent.mover {
+                Mover::Late(_) => self.work.bound(0, agent.row, self.semantics.later()),
+                _ => self.work.at_least(agent.row, self.semantics.due(agent.min)),
+            };
+            // arrivals on one wire come one after the other
+            let apart = match agent.mover {
+                Mover::Arrival(wire) if self.found.key(firing.key).apart(wire as usize) => info.row(Slot::Apart(wire)),
+                _ => 0,
+            };
+            if !able || apart > 0 && !self.work.bound(0, apart, self.semantics.later()) {
+                return false;
+            }
+        }
+        if firing.stepping > 0 {
+            // those of one instant come together, and before everything else
+            let fired = info.row(Slot::Fired);
+            let since = if steps > 0 { info.row(Slot::Since) } else { 0 };
+            for row in [fired, since] {
+                if row > 0 && !self.work.bound(0, row, self.semantics.later()) {
+                    return false;
+                }
+            }
+            let start = info.row(Slot::Start);
+            for other in &plant.steps[steps + 1..steps + firing.stepping] {
+                if let PlantPlace::At(ticks) = other.place
+                    && !self.work.at_least(start, ticks.min)
+                {
+                    return false;
+                }
+            }
+        }
+        true
+    }
+
+    /// What is under way on wires after it. False: nothing is left.
+    fn set_out(&mut self, firing: &Firing<'_>) -> bool {
+        let (plant, layout) = (self.plant, self.layout);
+        let info = &self.known.infos[firing.key as usize];
+        let key = self.found.key(firing.key);
+        for (w, wire) in plant.wires.iter().enumerate() {
+            let arrives = firing.has(Mover::Arrival(w as u32));
+            let sets_out = bit(key.values(), wire.net as usize) != bit(&self.words, wire.net as usize);
+            let first = u8::from(arrives);
+            let mut flights = key.flights(w) - first;
+            let due = |place: u8| {
+                let row = info.row(Slot::Flight(w as u32, place));
+                (row, key::flight_delay(plant, key.values(), w, place))
+            };
+            let mut apart =
+                key.apart(w) && !arrives && self.work.at(0, info.row(Slot::Apart(w as u32))) == zone::AT_MOST_ZERO;
+            if arrives && flights > 0 {
+                let (row, delay) = due(1);
+                apart = self.work.may_reach(row, delay.min);
+            }
+            if sets_out {
+                let over = firing.overtaken(w as u32);
+                let delay = wire.delay[usize::from(bit(&self.words, wire.net as usize))];
+                for place in 0..flights {
+                    let (row, before) = due(first + place);
+                    let able = if place < flights - over {
+                        self.work.bound(0, row, zone::below(delay.max - before.min))
+                    } else {
+                        self.work.bound(row, 0, zone::at_most(before.max - delay.min))
+                    };
+                    if !able {
+                        return false;
+                    }
+                }
+                flights = flights - over + u8::from(over.is_multiple_of(2));
+            }
+            if flights > key::FLIGHTS {
+                self.end(Ended::InFlight);
+                return false;
+            }
+            KeyMut { words: &mut self.words, layout }.set_flights(w, flights, apart && flights > 0);
+        }
+        true
+    }
+
+    /// The gates that are excited after it; those that no longer are were not due yet. False: nothing is left.
+    fn excite(&mut self, firing: &Firing<'_>) -> bool {
+        let plant = self.plant;
+        let info = &self.known.infos[firing.key as usize];
+        let key = self.found.key(firing.key);
+        self.excited.clone_from(&info.excited);
+        let (excited, words) = (&mut self.excited, &self.words);
+        let mut again = |gate: usize| put(excited, gate, key::excited(plant, words, gate));
+        for (at, (before, after)) in key.values().iter().zip(words).enumerate() {
+            let mut differ = before ^ after;
+            while differ != 0 {
+                let signal = 64 * at + differ.trailing_zeros() as usize;
+                differ &= differ - 1;
+                plant.readers[signal].iter().for_each(|gate| again(*gate as usize));
+                if let Some(gate) = signal.checked_sub(plant.inputs).filter(|gate| *gate < plant.gates.len()) {
+                    again(gate);
+                }
+            }
+        }
+        self.disabled.clear();
+        for agent in &info.agents {
+            if let Mover::Gate(gate) = agent.mover
+                && !bit(&self.excited, gate as usize)
+                && !firing.has(agent.mover)
+            {
+                let most = self.semantics.cancelled(gate_max(plant, key.values(), gate as usize));
+                if !self.work.bound(agent.row, 0, most) {
+                    return false;
+                }
+                self.disabled.push((gate, agent.row));
+            }
+        }
+        true
+    }
+
+    /// What cools may not be excited again at the instant at which it was disabled. False: nothing is left.
+    fn is_cool(&mut self, firing: &Firing<'_>) -> bool {
+        if !self.found.key(firing.key).any_cools() {
+            return true;
+        }
+        for (slot, row) in self.known.infos[firing.key as usize].slots.iter().zip(1..) {
+            if let Slot::Cool(gate) = slot
+                && bit(&self.excited, *gate as usize)
+                && !self.work.bound(0, row, self.semantics.later())
+            {
+                return false;
+            }
+        }
+        true
+    }
+
+    /// Could something else that is due excite this gate again at the instant of the firing?
+    fn could_excite(&self, firing: &Firing<'_>, gate: u32) -> bool {
+        let (plant, steps) = (self.plant, firing.steps);
+        let key = self.found.key(firing.key);
+        let reads = |signal: u32| plant.gates[gate as usize].reads.iter().any(|read| read.0 == signal);
+        self.known.infos[firing.key as usize].agents.iter().any(|agent| {
+            let gone = match agent.mover {
+                Mover::Step(_) => firing.stepping > 0,
+                mover => firing.has(mover),
+            };
+            !gone
+                && self.work.may_reach(agent.row, agent.min)
+                && match agent.mover {
+                    Mover::Gate(other) => {
+                        bit(&self.excited, other as usize) && reads((plant.inputs + other as usize) as u32)
+                    }
+                    Mover::Arrival(wire) => reads((plant.nets.len() + wire as usize) as u32),
+                    Mover::Overtaking(..) => false,
+                    Mover::Step(_) => {
+                        let all = &plant.steps[steps..steps + agent.steps as usize];
+                        let late = plant.steps[..steps].last().filter(|_| key.skew() != 0);
+                        all.iter().chain(late).any(|step| step.set.iter().any(|(net, _)| reads(*net)))
+                    }
+                    Mover::Late(entry) => reads(plant.steps[steps - 1].set[entry as usize].0),
+                }
+        })
+    }
+
+    /// Which gates cool after it: those that were disabled at this very instant, as long as that can matter.
+    fn cool(&mut self, firing: &Firing<'_>) {
+        let layout = self.layout;
+        let mut cooling = std::mem::take(&mut self.cooling);
+        cooling.clear();
+        if self.found.key(firing.key).any_cools() {
+            for row in 1..self.work.size {
+                let Slot::Cool(gate) = self.known.infos[firing.key as usize].slots[row - 1] else { continue };
+                let still = self.work.at(0, row) == zone::AT_MOST_ZERO;
+                let cools = !bit(&self.excited, gate as usize) && still && self.could_excite(firing, gate);
+                KeyMut { words: &mut self.words, layout }.set_cools(gate as usize, cools);
+            }
+        }
+        if self.semantics.cools() {
+            cooling.extend(self.disabled.iter().map(|it| it.0).filter(|gate| self.could_excite(firing, *gate)));
+        }
+        for gate in &cooling {
+            KeyMut { words: &mut self.words, layout }.set_cools(*gate as usize, true);
+        }
+        self.cooling = cooling;
+    }
+
+    /// The key after it, and where the clocks of the watch come from.
+    fn next_key(&mut self, firing: &Firing<'_>) -> (u32, [Fate; 2]) {
+        let (plant, layout) = (self.plant, self.layout);
+        let info = &self.known.infos[firing.key as usize];
+        let key = self.found.key(firing.key);
+        let step = firing.stepping > 0;
+        // a step that is due comes before what fires at its instant
+        let due = |agent: &Agent| matches!(agent.mover, Mover::Step(_)) && self.work.may_reach(agent.row, agent.min);
+        let fired = !step && info.agents.iter().any(due);
+        let block = Block {
+            plant,
+            before: key.values(),
+            after: &self.words[..layout.values],
+            step: step.then_some(firing.steps),
+            steps: firing.stepping,
+            rested: info.rest,
+            late: firing.movers.iter().any(|mover| matches!(mover, Mover::Late(_))),
+            disabled: &self.disabled,
+            zone: &self.work,
+            row: info.watch_row,
+        };
+        let (touches, rested) = (block.touches(), info.rest);
+        self.hits.clear();
+        let hits = &mut self.hits;
+        let (state, fates) = self.watch.block(key.watch(), &block, &mut |hit| hits.push(hit));
+        let origin = match (touches, rested) {
+            (false, _) => key.origin(),
+            (true, false) => NOWHERE,
+            (true, true) => {
+                let before = key.values().to_vec();
+                self.state_number(&before)
+            }
+        };
+        let mut next = KeyMut { words: &mut self.words, layout };
+        next.set_step(firing.steps + firing.stepping, origin);
+        next.set_watch(state, fired);
+        (self.intern(), fates)
+    }
+
+    /// The clocks after it, into `entry`.
+    fn next_clocks(&mut self, firing: &Firing<'_>, number: u32, fates: [Fate; 2]) {
+        let (old, new) = (&self.known.infos[firing.key as usize], &self.known.infos[number as usize]);
+        let key: Key<'_> = self.found.key(firing.key);
+        self.from.clear();
+        let mut last = 0;
+        for slot in &new.slots {
+            let from = match *slot {
+                Slot::Gate(gate) if firing.has(Mover::Gate(gate)) => None,
+                Slot::Flight(wire, place) => {
+                    let first = u8::from(firing.has(Mover::Arrival(wire)));
+                    let end = key.flights(wire as usize) - firing.overtaken(wire);
+                    (first + place < end).then_some(Slot::Flight(wire, first + place))
+                }
+                Slot::Since if firing.stepping > 0 => None,
+                Slot::Fired => None,
+                Slot::Apart(wire) if firing.has(Mover::Arrival(wire)) => None,
+                Slot::Cool(gate) if self.cooling.contains(&gate) => None,
+                Slot::Watch(clock) => match fates[clock as usize] {
+                    Fate::Keep(place) => Some(Slot::Watch(place)),
+                    Fate::Begin => None,
+                },
+                slot => Some(slot),
+            };
+            let row = from.map_or(0, |slot| old.row_after(slot, last));
+            last = last.max(row);
+            self.from.push(row);
+        }
+        self.work.gather(&self.from, &mut self.entry);
+    }
+}
