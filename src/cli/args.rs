@@ -246,6 +246,12 @@ pub struct Proving {
     /// Seconds for the whole proof; beyond that what is left is undecided, and results depend on the machine
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(1..=1 << 32))]
     pub seconds: Option<u64>,
+    /// Also find how far all ranges may be stretched about typical with each claim still proved; several times the work
+    #[arg(long)]
+    pub margin: bool,
+    /// Also find the least delay to add so that what is refuted becomes proved; several times the work
+    #[arg(long)]
+    pub padding: bool,
     /// Exit with 1 unless every claim is proved
     #[arg(long)]
     pub strict: bool,

@@ -19,7 +19,13 @@ pub fn run(arguments: &Proving) -> Result<ExitCode, Failure> {
     let program = program(&scenario, &control)?;
     let asked = Asked::of(&scenario);
     let time = arguments.seconds.map(Duration::from_secs);
-    let spend = Spend { zones: arguments.zones, bytes: arguments.memory << 20, time };
+    let spend = Spend {
+        zones: arguments.zones,
+        bytes: arguments.memory << 20,
+        time,
+        margins: arguments.margin,
+        padding: arguments.padding,
+    };
     let proof = proof::prove(&scenario, &program, &asked, &spend, &control);
     finish(bar);
     let files = proof.witness_files();

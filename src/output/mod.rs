@@ -9,6 +9,7 @@ pub mod bundle;
 mod causes;
 pub mod charts;
 pub mod convergence;
+mod deciding;
 pub mod flow_map;
 pub mod flow_tables;
 mod flow_words;

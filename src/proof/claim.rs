@@ -1,5 +1,8 @@
 //! What a proof says, in ids and exact times; names and texts are made where results are written.
 
+use super::margin::Margin;
+use super::padding::Padding;
+use super::race::Race;
 use crate::instance::Instance;
 use crate::logic::State;
 use crate::time::Span;
@@ -76,6 +79,26 @@ pub struct Claim {
     pub witness: Option<Box<Instance>>,
     /// Why it is undecided or not covered; or what of the scenario was left out in refuting it.
     pub reason: Option<String>,
+    /// For a refuted claim the inequality that decides it, where runs on both sides of one confirm it.
+    pub race: Option<Race>,
+    /// How far the ranges may be stretched, where that was asked and found out.
+    pub margin: Option<Margin>,
+}
+
+impl Claim {
+    /// A claim of which no more is known yet.
+    pub(super) fn new(question: u32, call: Call) -> Claim {
+        Claim {
+            question,
+            call,
+            but_for_ties: false,
+            variation: None,
+            witness: None,
+            reason: None,
+            race: None,
+            margin: None,
+        }
+    }
 }
 
 /// What is known of the window of one moment.
@@ -114,6 +137,8 @@ pub struct Proof {
     pub claims: Vec<Claim>,
     /// The windows, in the order of their moments.
     pub windows: Vec<WindowProof>,
+    /// Delays to add, where that was asked.
+    pub padding: Option<Padding>,
     /// Zones that were kept, in all explorations.
     pub zones: u64,
     /// What was left out, in whole sentences.

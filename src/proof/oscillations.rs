@@ -4,8 +4,35 @@ use std::collections::BTreeMap;
 
 use super::claim::{Call, Claim, Variation};
 use super::cycles::{Cycle, RestVerdict, comes_to_rest};
+use super::explored::Fired;
+use super::goals::Goal;
+use super::key::{Mover, bit};
+use super::plant::Plant;
 use super::prove::{Prover, Unsaid, World};
 use crate::instance::{Instance, Which};
+
+/// The blocks of a cycle; `None` where wires may overtake, so that values do not tell what happened.
+fn once_round(plant: &Plant, cycle: &Cycle) -> Option<Vec<Fired>> {
+    if plant.wires.iter().any(|wire| !wire.in_order) {
+        return None;
+    }
+    let mut before = cycle.lead.last().map_or(&cycle.start, |block| &block.values);
+    let mut blocks = Vec::new();
+    for values in &cycle.round {
+        let changed = |signal: &usize| bit(before, *signal) != bit(values, *signal);
+        let mover = |signal: usize| match signal.checked_sub(plant.nets.len()) {
+            Some(wire) => Mover::Arrival(wire as u32),
+            None => Mover::Gate((signal - plant.inputs) as u32),
+        };
+        let movers: Vec<Mover> = (plant.inputs..plant.signals()).filter(changed).map(mover).collect();
+        if movers.is_empty() {
+            return None;
+        }
+        blocks.push(Fired { movers, values: values.clone(), steps: cycle.steps as usize });
+        before = values;
+    }
+    Some(blocks)
+}
 
 impl Prover<'_> {
     /// Does no window oscillate, where that is forbidden?
@@ -32,9 +59,8 @@ impl Prover<'_> {
     }
 
     /// What the oscillations of one part say of a question.
-    fn endless(&self, world: &World, cycles: &[Cycle], question: u32) -> Claim {
-        let mut claim =
-            Claim { question, call: Call::Proved, but_for_ties: false, variation: None, witness: None, reason: None };
+    fn endless(&mut self, world: &World, cycles: &[Cycle], question: u32) -> Claim {
+        let mut claim = Claim::new(question, Call::Proved);
         if self.asked.questions[question as usize].wants_oscillation {
             claim.call = Call::NotCovered;
             claim.reason = Some("the proof does not know oscillations that are required".to_string());
@@ -47,9 +73,27 @@ impl Prover<'_> {
         }
         claim.but_for_ties = here.iter().all(|cycle| cycle.needs_ties == Some(true));
         // the way there is no way round: whether it goes on, the run says
-        let ways = here.iter().filter_map(|cycle| self.case_of(world, &cycle.lead, &cycle.start).ok());
+        let mut shown = None;
+        for cycle in &here {
+            // once round, where it can be told what fires; then only the way there
+            let round = once_round(&world.plant, cycle);
+            let whole: Option<Vec<Fired>> = round.map(|round| cycle.lead.iter().cloned().chain(round).collect());
+            let known = whole.as_ref().unwrap_or(&cycle.lead);
+            self.keep(world, &[(known, &cycle.start)], question, &Goal::Reached);
+            for way in whole.iter().chain([&cycle.lead]) {
+                if shown.is_none()
+                    && let Ok((system, instance)) = self.case_of(world, way, &cycle.start)
+                    && self.shows(&instance, question)
+                {
+                    let shows = |case: &Instance| self.shows(case, question);
+                    let way = (&way[..], &cycle.start[..]);
+                    claim.race = self.deciding(world, &system, way, claim.but_for_ties, &shows);
+                    shown = Some(instance);
+                }
+            }
+        }
         let usual = [Which::Typ, Which::Min, Which::Max].map(|which| Instance::of(self.scenario, &which));
-        let shown = ways.chain(usual).find(|instance| self.shows(instance, question));
+        let shown = shown.or_else(|| usual.into_iter().find(|instance| self.shows(instance, question)));
         claim.call = if shown.is_some() { Call::Refuted } else { Call::Undecided };
         claim.variation = Some(if shown.is_some() { Variation::Constant } else { Variation::Unknown });
         if shown.is_none() {

@@ -3,15 +3,20 @@
 use std::collections::{BTreeMap, BTreeSet};
 
 use super::claim::{Call, Variation};
-use super::explored::{Explored, Mode, NOWHERE, Rest};
+use super::evidence::{Least, Trail};
+use super::explored::{Explored, Fired, Mode, NOWHERE, Rest};
 use super::goals::Goal;
 use super::key::bit;
 use super::prove::{Prover, Unsaid, World, reached};
+use super::race::Race;
+use super::ratio::Ratio;
+use super::system::System;
 use super::watch::Nothing;
 use super::watches::BeforeRest;
 use crate::circuit::NetId;
 use crate::findings::Question;
 use crate::flow::{Answer, Coming, Passed};
+use crate::instance::Instance;
 use crate::logic::{Bits, State};
 use crate::scenario::Alternative;
 use crate::sweep::race_breaks;
@@ -27,6 +32,14 @@ struct Part {
     found: Explored,
     /// Without what takes exactly equal times.
     apart: Explored,
+}
+
+/// An outcome, as a run reached it.
+struct Reached {
+    system: System,
+    instance: Instance,
+    trace: Vec<Fired>,
+    start: Vec<u64>,
 }
 
 /// By the state that a window began in, the states that it came to rest in, each with a way.
@@ -111,26 +124,38 @@ impl Prover<'_> {
         let without = several(false);
         let ties = !breaks(&without);
         let ways = if ties { &with } else { &without };
-        let mut shown: Option<crate::instance::Instance> = None;
-        let mut reason = None;
-        'groups: for (number, states) in ways {
+        let mut shown: Option<Instance> = None;
+        let (mut reason, mut race) = (None, None);
+        for (number, states) in ways {
             let part = &parts[*number];
             let found = if ties { &part.found } else { &part.apart };
-            let mut ran: BTreeMap<Option<State>, BTreeMap<State, crate::instance::Instance>> = BTreeMap::new();
-            for (_, node) in states.iter().take(WAYS) {
-                let (trace, start) = (found.trace(*node), found.start(*node));
+            let ways: Vec<(Vec<Fired>, Vec<u64>)> =
+                states.iter().take(WAYS).map(|(_, node)| (found.trace(*node), found.start(*node))).collect();
+            // any two of the outcomes are a race
+            for (number, ours) in ways.iter().enumerate() {
+                for theirs in &ways[..number] {
+                    let both = [(&theirs.0[..], &theirs.1[..]), (&ours.0[..], &ours.1[..])];
+                    self.keep(&part.world, &both, question, &Goal::Reached);
+                }
+            }
+            if shown.is_some() {
+                continue;
+            }
+            let mut ran: BTreeMap<Option<State>, BTreeMap<State, Reached>> = BTreeMap::new();
+            for (trace, start) in ways {
                 match self.case_of(&part.world, &trace, &start) {
-                    Ok(instance) => {
+                    Ok((system, instance)) => {
                         let Some((before, after)) = self.passage(&instance, moment) else {
                             reason = Some("delays were found, but their run does not come to rest".to_string());
                             continue;
                         };
                         let reached = ran.entry(before).or_default();
-                        reached.insert(after, instance);
+                        reached.insert(after, Reached { system, instance, trace, start });
                         let states: BTreeSet<&State> = reached.keys().collect();
                         if race_breaks(self.scenario, moment, &states) {
-                            shown = reached.values().next_back().cloned();
-                            break 'groups;
+                            shown = reached.values().next_back().map(|it| it.instance.clone());
+                            race = self.choosing(&part.world, reached, moment, ties);
+                            break;
                         }
                     }
                     Err(why) => reason = Some(why.to_string()),
@@ -143,7 +168,23 @@ impl Prover<'_> {
         claim.variation = Some(if shown.is_some() { Variation::Constant } else { Variation::Unknown });
         claim.reason = if shown.is_some() { None } else { Some(reason) };
         claim.witness = shown.map(Box::new);
+        claim.race = race;
         Ok(())
+    }
+
+    /// The inequality that decides between the outcomes of a race: that of the outcome which the typical run has not, and
+    /// which asks least of the ranges.
+    fn choosing(&self, world: &World, reached: &BTreeMap<State, Reached>, moment: u32, ties: bool) -> Option<Race> {
+        let far = |it: &Reached| match Trail::of(&world.plant, &it.system).least(self.scenario) {
+            Least::At { factor, .. } => factor,
+            Least::Never | Least::GaveUp => Ratio::ZERO,
+        };
+        let mut all: Vec<(Ratio, &State, &Reached)> = reached.iter().map(|(state, it)| (far(it), state, it)).collect();
+        all.sort_by(|a, b| b.0.cmp(&a.0));
+        all.into_iter().find_map(|(_, state, it)| {
+            let shows = |case: &Instance| self.passage(case, moment).is_some_and(|(_, after)| after == *state);
+            self.deciding(world, &it.system, (&it.trace, &it.start), ties, &shows)
+        })
     }
 
     /// The alternatives that the step of a moment expects.
@@ -154,7 +195,7 @@ impl Prover<'_> {
     }
 
     /// The state before and after the window of a moment in the run of a case, if it began and ended at rest.
-    fn passage(&self, instance: &crate::instance::Instance, moment: u32) -> Option<(Option<State>, State)> {
+    fn passage(&self, instance: &Instance, moment: u32) -> Option<(Option<State>, State)> {
         let run = self.run(instance)?;
         let at = run.windows.iter().position(|window| window.moment == moment)?;
         let window = &run.windows[at];

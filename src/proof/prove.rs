@@ -9,6 +9,7 @@ use std::collections::BTreeMap;
 use std::time::{Duration, Instant};
 
 use super::claim::{Call, Claim, Proof, Variation};
+use super::evidence::{Evidence, trails};
 use super::explore::explore;
 use super::explored::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE};
 use super::goals::Goal;
@@ -46,11 +47,15 @@ pub struct Spend {
     pub bytes: u64,
     /// Time for all, at most; `None` for no bound.
     pub time: Option<Duration>,
+    /// Look for the margin of each claim as well: several explorations a claim.
+    pub margins: bool,
+    /// Look for delays to add that make what is refuted proved: the whole proof several times over.
+    pub padding: bool,
 }
 
 impl Default for Spend {
     fn default() -> Spend {
-        Spend { zones: 200_000, bytes: 1 << 30, time: None }
+        Spend { zones: 200_000, bytes: 1 << 30, time: None, margins: false, padding: false }
     }
 }
 
@@ -62,19 +67,30 @@ pub fn prove(scenario: &Scenario, program: &Program, asked: &Asked, spend: &Spen
         until: spend.time.map(|time| Instant::now() + time),
         control: control.clone(),
     };
-    let mut prover = Prover { scenario, program, asked, budget, proof: Proof::default() };
-    prover.questions();
+    let mut prover = Prover::new(scenario, program, asked, budget);
+    prover.collects = spend.margins || spend.padding;
+    prover.questions(&|_| true);
     prover.windows();
     prover.proof.claims.sort_by_key(|claim| claim.question);
+    if spend.margins {
+        prover.margins();
+    }
+    if spend.padding {
+        prover.padding();
+    }
     prover.proof
 }
 
 pub(super) struct Prover<'a> {
     pub(super) scenario: &'a Scenario,
-    program: &'a Program,
+    pub(super) program: &'a Program,
     pub(super) asked: &'a Asked,
     pub(super) budget: Budget,
     pub(super) proof: Proof,
+    /// Is evidence kept?
+    pub(super) collects: bool,
+    /// What speaks against claims.
+    pub(super) evidence: Vec<Evidence>,
 }
 
 /// Why nothing can be said, and whether that is for want of time or by nature.
@@ -98,6 +114,10 @@ enum Looked {
 }
 
 impl<'a> Prover<'a> {
+    pub(super) fn new(scenario: &'a Scenario, program: &'a Program, asked: &'a Asked, budget: Budget) -> Prover<'a> {
+        Prover { scenario, program, asked, budget, proof: Proof::default(), collects: false, evidence: Vec::new() }
+    }
+
     pub(super) fn world(&self, nets: &[NetId], spans: &[Span]) -> Result<World, Unsaid> {
         let plant = Plant::of(self.scenario, nets, spans)
             .map_err(|what| Unsaid { call: Call::NotCovered, reason: what.to_string() })?;
@@ -179,8 +199,7 @@ impl<'a> Prover<'a> {
     }
 
     pub(super) fn claim(&mut self, question: u32, call: Call) -> &mut Claim {
-        let claim = Claim { question, call, but_for_ties: false, variation: None, witness: None, reason: None };
-        self.proof.claims.push(claim);
+        self.proof.claims.push(Claim::new(question, call));
         self.proof.claims.last_mut().expect("it was just added")
     }
 
@@ -190,10 +209,10 @@ impl<'a> Prover<'a> {
         }
     }
 
-    /// The questions, those of one rule and net together.
-    fn questions(&mut self) {
+    /// The questions that are wanted, those of one rule and net together.
+    pub(super) fn questions(&mut self, wanted: &dyn Fn(u32) -> bool) {
         let mut groups: BTreeMap<(RuleKey, u32, Option<NetId>), Vec<u32>> = BTreeMap::new();
-        for (number, question) in self.asked.questions.iter().enumerate() {
+        for (number, question) in self.asked.questions.iter().enumerate().filter(|(number, _)| wanted(*number as u32)) {
             groups.entry((question.rule, question.index, question.net)).or_default().push(number as u32);
         }
         let total = groups.len() as u64;
@@ -545,15 +564,23 @@ impl<'a> Prover<'a> {
     pub(super) fn refute(&mut self, world: &World, found: &Explored, ways: &[(u32, bool)], question: u32, goal: &Goal) {
         let but_for_ties = !ways.is_empty() && ways.iter().all(|(_, tie)| *tie);
         let mut witness = None;
+        let mut race = None;
         let mut reason = "delays were found, but their run does not show it";
         for (node, _) in ways.iter().take(WAYS) {
             let (trace, start) = (found.trace(*node), found.start(*node));
-            match self.cases_of(world, &trace, &start, goal) {
-                Ok(cases) => witness = cases.into_iter().find(|case| self.shows(case, question)),
-                Err(why) => reason = why,
-            }
+            self.keep(world, &[(&trace, &start)], question, goal);
             if witness.is_some() {
-                break;
+                continue;
+            }
+            match self.cases_of(world, &trace, &start, goal) {
+                Ok(cases) => {
+                    if let Some((system, case)) = cases.into_iter().find(|(_, case)| self.shows(case, question)) {
+                        let shows = |case: &Instance| self.shows(case, question);
+                        race = self.deciding(world, &system, (&trace, &start), but_for_ties, &shows);
+                        witness = Some(case);
+                    }
+                }
+                Err(why) => reason = why,
             }
         }
         // the usual cases lie in the ranges, too
@@ -564,17 +591,36 @@ impl<'a> Prover<'a> {
         claim.but_for_ties = but_for_ties;
         claim.variation = Some(if refuted { Variation::Constant } else { Variation::Unknown });
         claim.witness = witness.map(Box::new);
+        claim.race = race;
         claim.reason = (!refuted).then(|| reason.to_string());
     }
 
-    /// Cases that go the way of a trace to a goal, one for each way to reach it, or why there is none.
-    fn cases_of(
+    /// Keeps what traces, which must all be possible, say against a claim.
+    pub(super) fn keep(&mut self, world: &World, traces: &[(&[Fired], &[u64])], question: u32, goal: &Goal) {
+        if !self.collects {
+            return;
+        }
+        match traces {
+            [(trace, start)] => {
+                for trail in trails(world, trace, start, goal) {
+                    self.evidence.push(Evidence { question, trails: vec![trail] });
+                }
+            }
+            traces => {
+                let trails = traces.iter().flat_map(|(trace, start)| trails(world, trace, start, goal)).collect();
+                self.evidence.push(Evidence { question, trails });
+            }
+        }
+    }
+
+    /// Cases that go the way of a trace to a goal, with their systems, one for each way to reach it, or why there is none.
+    pub(super) fn cases_of(
         &self,
         world: &World,
         trace: &[Fired],
         start: &[u64],
         goal: &Goal,
-    ) -> Result<Vec<Instance>, &'static str> {
+    ) -> Result<Vec<(System, Instance)>, &'static str> {
         let shared = one_draw(self.scenario, &world.plant);
         let system = System::of(&world.plant, start, trace, &shared);
         let mut cases = Vec::new();
@@ -584,7 +630,8 @@ impl<'a> Prover<'a> {
             forms.into_iter().for_each(|form| system.push(form, Sense::Below));
             match system.solve() {
                 Points::Some(point) => {
-                    cases.push(case(self.scenario, &world.plant, &system, &point, trace, start).instance);
+                    let instance = case(self.scenario, &world.plant, &system, &point, trace, start).instance;
+                    cases.push((system, instance));
                 }
                 Points::None => why = "no constant delays were found that show it",
                 Points::GaveUp => why = "the numbers of the linear program grew too large",
@@ -593,8 +640,13 @@ impl<'a> Prover<'a> {
         if cases.is_empty() { Err(why) } else { Ok(cases) }
     }
 
-    /// A case that goes the way of a trace, or why there is none.
-    pub(super) fn case_of(&self, world: &World, trace: &[Fired], start: &[u64]) -> Result<Instance, &'static str> {
+    /// A case that goes the way of a trace with its system, or why there is none.
+    pub(super) fn case_of(
+        &self,
+        world: &World,
+        trace: &[Fired],
+        start: &[u64],
+    ) -> Result<(System, Instance), &'static str> {
         let cases = self.cases_of(world, trace, start, &Goal::Reached)?;
         cases.into_iter().next().ok_or("no case was found")
     }

@@ -34,8 +34,9 @@ pub struct Solution {
     pub values: Vec<i128>,
     /// Numerator of the objective.
     pub objective: i128,
-    /// Which rows have a price: tight in every optimal point.
-    pub priced: Vec<bool>,
+    /// Numerators of the prices of the rows (the dual solution), none below 0: what one more of a limit is worth. A row
+    /// with a price is tight in every optimal point; the rows times their prices add up to the objective's bound.
+    pub prices: Vec<i128>,
 }
 
 /// Pivots, at most.
@@ -194,13 +195,13 @@ impl Program {
                 values[*variable] = it.at(row, last);
             }
         }
-        let mut priced = vec![false; rows];
+        let mut prices = vec![0; rows];
         for (column, variable) in it.free.iter().enumerate() {
             if (variables..variables + rows).contains(variable) {
-                priced[variable - variables] = it.at(rows, column) > 0;
+                prices[variable - variables] = it.at(rows, column);
             }
         }
-        Some(Solved::Best(Solution { denominator: it.denominator, values, objective: it.at(rows, last), priced }))
+        Some(Solved::Best(Solution { denominator: it.denominator, values, objective: it.at(rows, last), prices }))
     }
 }
 

@@ -93,6 +93,10 @@ pub struct System {
     pub unknowns: Vec<Unknown>,
     /// The range of each.
     pub ranges: Vec<Ticks>,
+    /// Which edges of a gate or wire each stands for, `[fall, rise]`.
+    pub edges: Vec<[bool; 2]>,
+    /// Which firing of its gate, or change on its wire, each belongs to, where each has a delay of its own; else 0.
+    pub(super) firing: Vec<u32>,
     /// The conditions.
     pub rows: Vec<Row>,
     /// When each block of the trace comes, from the start.
@@ -131,7 +135,11 @@ struct Walk<'a> {
     values: Vec<u64>,
     steps: usize,
     since: Vec<Option<Form>>,
-    flights: Vec<VecDeque<Form>>,
+    flights: Vec<VecDeque<(Form, u32)>>,
+    /// Has each firing a delay of its own? How often each gate was excited, and changes set out on each wire.
+    each: bool,
+    excited: Vec<u32>,
+    launched: Vec<u32>,
     step_time: Form,
     /// For each signal the block that last changed it.
     last: Vec<Option<usize>>,
@@ -144,6 +152,21 @@ impl System {
     ///
     /// Dependent events keep their order; events that have nothing to do with each other may come in any order.
     pub fn of(plant: &Plant, start: &[u64], trace: &[Fired], shared: &dyn Fn(Unknown) -> Unknown) -> System {
+        System::walked(plant, start, trace, shared, false)
+    }
+
+    /// The same where each firing takes a delay of its own from its range, as in the exploration.
+    pub(super) fn of_each(plant: &Plant, start: &[u64], trace: &[Fired]) -> System {
+        System::walked(plant, start, trace, &|unknown| unknown, true)
+    }
+
+    fn walked(
+        plant: &Plant,
+        start: &[u64],
+        trace: &[Fired],
+        shared: &dyn Fn(Unknown) -> Unknown,
+        each: bool,
+    ) -> System {
         let mut walk = Walk {
             plant,
             system: System::default(),
@@ -151,6 +174,9 @@ impl System {
             steps: 0,
             since: vec![None; plant.gates.len()],
             flights: vec![VecDeque::new(); plant.wires.len()],
+            each,
+            excited: vec![0; plant.gates.len()],
+            launched: vec![0; plant.wires.len()],
             step_time: Form::default(),
             last: vec![None; plant.signals()],
             shared,
@@ -175,11 +201,14 @@ impl System {
         self.rows.push(Row { form, sense });
     }
 
-    /// The number of an unknown of this range.
-    fn unknown(&mut self, unknown: Unknown, range: Ticks) -> usize {
-        self.unknowns.iter().position(|it| *it == unknown).unwrap_or_else(|| {
+    /// The number of an unknown of this range, in this firing.
+    fn unknown(&mut self, unknown: Unknown, firing: u32, range: Ticks) -> usize {
+        let known = (0..self.unknowns.len()).find(|at| self.unknowns[*at] == unknown && self.firing[*at] == firing);
+        known.unwrap_or_else(|| {
             self.unknowns.push(unknown);
+            self.firing.push(firing);
             self.ranges.push(range);
+            self.edges.push([false; 2]);
             self.unknowns.len() - 1
         })
     }
@@ -222,7 +251,7 @@ impl System {
                 Solved::Unbounded | Solved::GaveUp => return Points::GaveUp,
             };
             let tight: Vec<usize> =
-                strict.iter().filter(|(_, row)| best.priced[*row]).map(|(number, _)| *number).collect();
+                strict.iter().filter(|(_, row)| best.prices[*row] > 0).map(|(number, _)| *number).collect();
             if best.objective > 0 || strict.is_empty() {
                 let values = (0..slack)
                     .map(|unknown| best.values[unknown] + i128::from(self.ranges[unknown].min) * best.denominator)
@@ -238,16 +267,20 @@ impl System {
 }
 
 impl Walk<'_> {
-    fn unknown(&mut self, unknown: Unknown, range: Ticks) -> usize {
+    fn unknown(&mut self, unknown: Unknown, firing: u32, range: Ticks) -> usize {
         let shared = (self.shared)(unknown);
-        self.system.unknown(shared, range)
+        let number = self.system.unknown(shared, if self.each { firing } else { 0 }, range);
+        if let Unknown::Gate(_, rises) | Unknown::Wire(_, rises) = unknown {
+            self.system.edges[number][usize::from(rises)] = true;
+        }
+        number
     }
 
     /// When a gate that has been excited since then fires.
     fn due(&mut self, gate: u32, since: &Form) -> Form {
         let rises = !bit(&self.values, self.plant.inputs + gate as usize);
         let range = self.plant.gates[gate as usize].delay[usize::from(rises)];
-        since.plus(self.unknown(Unknown::Gate(gate, rises), range))
+        since.plus(self.unknown(Unknown::Gate(gate, rises), self.excited[gate as usize], range))
     }
 
     /// When a change under way arrives, `place` being how many are before it.
@@ -255,8 +288,8 @@ impl Walk<'_> {
         let end = bit(&self.values, self.plant.nets.len() + wire as usize);
         let rises = end == (place % 2 == 1);
         let range = self.plant.wires[wire as usize].delay[usize::from(rises)];
-        let launched = self.flights[wire as usize][place as usize].clone();
-        launched.plus(self.unknown(Unknown::Wire(wire, rises), range))
+        let (launched, number) = self.flights[wire as usize][place as usize].clone();
+        launched.plus(self.unknown(Unknown::Wire(wire, rises), number, range))
     }
 
     /// When a mover comes; `step` is the number of the step, if it is one, and `before` when the step before it came.
@@ -271,8 +304,8 @@ impl Walk<'_> {
             Mover::Step(_) => {
                 let place = Unknown::Place(step as u32);
                 match self.plant.steps[step].place {
-                    PlantPlace::At(range) => Form::default().plus(self.unknown(place, range)),
-                    PlantPlace::After(range) => before.plus(self.unknown(place, range)),
+                    PlantPlace::At(range) => Form::default().plus(self.unknown(place, 0, range)),
+                    PlantPlace::After(range) => before.plus(self.unknown(place, 0, range)),
                     PlantPlace::Rest(wait) => {
                         // rest begins with the last event
                         let rest =
@@ -290,7 +323,7 @@ impl Walk<'_> {
             Mover::Late(entry) => {
                 let step = self.steps - 1;
                 let range = Ticks { min: 0, max: self.plant.steps[step].skew };
-                before.plus(self.unknown(Unknown::Late(step as u32, entry), range))
+                before.plus(self.unknown(Unknown::Late(step as u32, entry), 0, range))
             }
         }
     }
@@ -298,7 +331,9 @@ impl Walk<'_> {
     /// A change sets out on a wire, and removes so many of those before it.
     fn sets_out(&mut self, wire: u32, rises: bool, over: usize, time: &Form) {
         let range = self.plant.wires[wire as usize].delay[usize::from(rises)];
-        let due = time.plus(self.unknown(Unknown::Wire(wire, rises), range));
+        self.launched[wire as usize] += 1;
+        let number = self.launched[wire as usize];
+        let due = time.plus(self.unknown(Unknown::Wire(wire, rises), number, range));
         let kept = self.flights[wire as usize].len() - over;
         for place in 0..self.flights[wire as usize].len() {
             let before = self.arrives(wire, place as u8);
@@ -313,7 +348,7 @@ impl Walk<'_> {
         }
         self.flights[wire as usize].truncate(kept);
         if over.is_multiple_of(2) {
-            self.flights[wire as usize].push_back(time.clone());
+            self.flights[wire as usize].push_back((time.clone(), number));
         }
     }
 
@@ -405,7 +440,10 @@ impl Walk<'_> {
         }
         for gate in 0..plant.gates.len() {
             match excited(plant, &self.values, gate) {
-                true if self.since[gate].is_none() => self.since[gate] = Some(time.clone()),
+                true if self.since[gate].is_none() => {
+                    self.since[gate] = Some(time.clone());
+                    self.excited[gate] += 1;
+                }
                 true => {}
                 false => self.since[gate] = None,
             }

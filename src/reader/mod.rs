@@ -110,7 +110,7 @@ fn stem(name: &str) -> String {
     Path::new(name).file_stem().map_or_else(|| name.to_string(), |stem| stem.to_string_lossy().into_owned())
 }
 
-const KEYS: [&str; 17] = [
+const KEYS: [&str; 18] = [
     "title",
     "time_unit",
     "outputs",
@@ -128,10 +128,11 @@ const KEYS: [&str; 17] = [
     "reference",
     "limits",
     "sweep",
+    "padding",
 ];
 
 /// Keys that later versions will read; until then they are named in every result.
-const RESERVED: [&str; 5] = ["cells", "parts", "split", "padding", "plot"];
+const RESERVED: [&str; 4] = ["cells", "parts", "split", "plot"];
 
 fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) {
     for (key, value) in table.iter() {
@@ -180,6 +181,7 @@ fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) {
             "reference" => gates::reference(walk, builder, value),
             "limits" => limits(walk, builder, value),
             "sweep" => sweep(walk, builder, value),
+            "padding" => padding(walk, builder, value),
             reserved if RESERVED.contains(&reserved) => {
                 let mark = walk.mark(key.span());
                 let sentence = Said::at(format!("`{reserved}`: not analysed yet; it has no effect"), mark);
@@ -257,6 +259,21 @@ fn sweep(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
                 }
             }
             _ => walk.unknown_key(key, &KEYS, "[sweep]"),
+        }
+    }
+}
+
+fn padding(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
+    let wanted = "write `[padding]`, then `allow = [\"a gate\", \"a net -> a gate\"]`";
+    let Some(table) = walk.table(value, wanted) else { return };
+    for (key, value) in table.iter() {
+        match key.get_ref().as_ref() {
+            "allow" => {
+                if let Some(names) = walk.names(value) {
+                    builder.padding(names);
+                }
+            }
+            _ => walk.unknown_key(key, &["allow"], "[padding]"),
         }
     }
 }

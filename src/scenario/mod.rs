@@ -6,6 +6,7 @@
 mod builder;
 mod condition;
 mod fault;
+mod padding;
 mod rules;
 mod stimulus;
 
@@ -16,6 +17,7 @@ use serde::{Deserialize, Serialize};
 pub use builder::*;
 pub use condition::*;
 pub use fault::*;
+pub use padding::*;
 pub use rules::*;
 pub use stimulus::*;
 
@@ -54,6 +56,8 @@ pub struct Scenario {
     pub limits: Limits,
     /// The sweep.
     pub plan: Plan,
+    /// Where delay may be added to cure what is refuted, in order; `None`: not said, see [`Scenario::paddable`].
+    pub padding: Option<Vec<Padded>>,
     /// Conditions of temperature and supply, in the order of the file; each is swept as a case of its own.
     pub conditions: Vec<Condition>,
     /// What the user should know of the scenario as it was understood, in the order of the file.

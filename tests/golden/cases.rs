@@ -138,6 +138,7 @@ impl Case {
             reference: None,
             limits: Limits::default(),
             plan: Plan::default(),
+            padding: None,
             conditions: Vec::new(),
             notes: Vec::new(),
             not_analysed: Vec::new(),

@@ -4,12 +4,14 @@
 
 mod eichelberger;
 mod engine;
+mod exact_windows;
 mod filters;
 mod flow_tables;
 mod hazards;
 mod hundreds_of_gates;
 mod large_networks;
 mod limits;
+mod linear_programs;
 mod networks;
 mod random_networks;
 mod small_networks;

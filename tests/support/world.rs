@@ -195,6 +195,7 @@ impl World {
             reference: None,
             limits: self.limits,
             plan: self.plan,
+            padding: None,
             conditions: Vec::new(),
             notes: Vec::new(),
             not_analysed: Vec::new(),

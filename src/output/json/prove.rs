@@ -4,9 +4,10 @@ use serde::Serialize;
 
 use super::parts::{Exact, Level, Object, OneLine, state};
 use crate::findings::Asked;
-use crate::output::words;
-use crate::proof::{Claim, Proof};
-use crate::scenario::Scenario;
+use crate::output::{deciding, words};
+use crate::proof::{Claim, Margin, Padding, PaddingEnd, Proof, Race, Sum};
+use crate::scenario::{Padded, Scenario};
+use crate::time::Span;
 
 #[derive(Serialize)]
 struct Document<'a> {
@@ -15,6 +16,7 @@ struct Document<'a> {
     unit: &'a str,
     claims: Vec<Told<'a>>,
     windows: Vec<Window<'a>>,
+    padding: Option<ThePadding>,
     zones: u64,
     notes: &'a [String],
 }
@@ -31,6 +33,106 @@ struct Told<'a> {
     variation: Option<&'static str>,
     witness: Option<&'a str>,
     reason: Option<&'a str>,
+    race: Option<TheRace>,
+    margin: Option<TheMargin>,
+}
+
+/// An inequality between two sums; `short`: how far the first can exceed the second.
+#[derive(Serialize)]
+struct TheRace {
+    text: String,
+    first: TheSum,
+    relation: &'static str,
+    second: TheSum,
+    short: Exact,
+}
+
+#[derive(Serialize)]
+struct TheSum {
+    terms: Vec<OneLine<Term>>,
+    constant: Exact,
+    range: OneLine<[Exact; 2]>,
+}
+
+#[derive(Serialize)]
+struct Term {
+    what: String,
+    times: u64,
+}
+
+#[derive(Serialize)]
+struct TheMargin {
+    factor: f64,
+    exact: String,
+    end: &'static str,
+    first: Option<TheRace>,
+}
+
+#[derive(Serialize)]
+struct ThePadding {
+    result: &'static str,
+    reason: Option<String>,
+    pads: Vec<OneLine<Pad>>,
+    total: Exact,
+    cut: bool,
+    proofs: u32,
+    patch: Vec<String>,
+}
+
+#[derive(Serialize)]
+struct Pad {
+    at: String,
+    add: Exact,
+}
+
+fn race(scenario: &Scenario, race: &Race) -> TheRace {
+    let unit = scenario.unit;
+    let sum = |sum: &Sum| TheSum {
+        terms: sum
+            .terms
+            .iter()
+            .map(|(of, times)| OneLine(Term { what: deciding::quantity(scenario, *of), times: *times }))
+            .collect(),
+        constant: Exact::signed(sum.constant as i128, unit),
+        range: OneLine(sum.range(scenario).map(|fs| Exact::signed(fs, unit))),
+    };
+    TheRace {
+        text: deciding::race(scenario, race),
+        first: sum(&race.first),
+        relation: race.relation.word(),
+        second: sum(&race.second),
+        short: Exact::signed(race.short(scenario), unit),
+    }
+}
+
+fn margin(scenario: &Scenario, margin: &Margin) -> TheMargin {
+    TheMargin {
+        factor: words::six(margin.factor.to_f64()),
+        exact: margin.factor.to_string(),
+        end: margin.end.word(),
+        first: margin.first.as_ref().map(|it| race(scenario, it)),
+    }
+}
+
+fn padding(scenario: &Scenario, padding: &Padding) -> ThePadding {
+    let total = padding.pads.iter().fold(Span::ZERO, |total, (_, pad)| total + *pad);
+    let pad = |(place, pad): &(Padded, Span)| {
+        OneLine(Pad { at: deciding::place(scenario, *place), add: Exact::span(*pad, scenario.unit) })
+    };
+    let lines = padding.pads.iter().flat_map(|(place, pad)| deciding::patch(scenario, *place, *pad));
+    let reason = match &padding.end {
+        PaddingEnd::Impossible(why) | PaddingEnd::Undecided(why) => Some(why.clone()),
+        PaddingEnd::NotNeeded | PaddingEnd::Found => None,
+    };
+    ThePadding {
+        result: padding.end.word(),
+        reason,
+        pads: padding.pads.iter().map(pad).collect(),
+        total: Exact::span(total, scenario.unit),
+        cut: padding.cut,
+        proofs: padding.rounds,
+        patch: lines.collect(),
+    }
 }
 
 #[derive(Serialize)]
@@ -58,6 +160,8 @@ pub fn prove<'a>(scenario: &'a Scenario, asked: &'a Asked, proof: &'a Proof, fil
             variation: claim.variation.map(|it| it.word()),
             witness: file.as_deref(),
             reason: claim.reason.as_deref(),
+            race: claim.race.as_ref().map(|it| race(scenario, it)),
+            margin: claim.margin.as_ref().map(|it| margin(scenario, it)),
         }
     };
     let windows = proof.windows.iter().map(|window| Window {
@@ -73,6 +177,7 @@ pub fn prove<'a>(scenario: &'a Scenario, asked: &'a Asked, proof: &'a Proof, fil
         unit: unit.name(),
         claims: proof.claims.iter().zip(files).map(told).collect(),
         windows: windows.collect(),
+        padding: proof.padding.as_ref().map(|it| padding(scenario, it)),
         zones: proof.zones,
         notes: &proof.notes,
     })

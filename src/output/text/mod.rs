@@ -12,6 +12,7 @@ mod notes;
 mod paper;
 mod part;
 mod prove;
+mod prove_more;
 mod review;
 mod rules;
 mod run;

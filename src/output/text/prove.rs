@@ -5,7 +5,7 @@ use std::collections::BTreeMap;
 use super::Page;
 use super::paper::{Paper, Table, Tone};
 use crate::findings::Asked;
-use crate::output::words;
+use crate::output::{deciding, words};
 use crate::proof::{Call, Claim, Proof};
 use crate::scenario::Scenario;
 
@@ -48,6 +48,10 @@ pub fn prove(scenario: &Scenario, asked: &Asked, proof: &Proof, files: &[Option<
         for (i, (claim, file)) in of(Call::Refuted).take(FULL).enumerate() {
             let ties = if claim.but_for_ties { ", only by exactly equal times" } else { "" };
             paper.hang(2, 4, Tone::Bad, &format!("{} {}{ties}", i + 1, about(claim)));
+            match &claim.race {
+                Some(race) => paper.hang(4, 6, Tone::Plain, &deciding::race(scenario, race)),
+                None => paper.say(4, Tone::Plain, "no single inequality was found that decides it"),
+            }
             if let Some(file) = file {
                 paper.whole(4, &page.replay_file(file));
             }
@@ -90,6 +94,10 @@ pub fn prove(scenario: &Scenario, asked: &Asked, proof: &Proof, files: &[Option<
         }
         paper.table(&table);
         super::more(&mut paper, proof.windows.len().saturating_sub(WINDOWS), "proof.json");
+    }
+    super::prove_more::margins(&mut paper, scenario, asked, proof);
+    if let Some(padding) = &proof.padding {
+        super::prove_more::padding(&mut paper, scenario, padding);
     }
     for note in &proof.notes {
         paper.say(0, Tone::Unsure, note);

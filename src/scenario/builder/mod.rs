@@ -7,6 +7,7 @@ mod circuit;
 mod conditions;
 mod context;
 mod delays;
+mod padding;
 mod reference;
 mod rules;
 mod said;
@@ -74,6 +75,7 @@ pub struct Builder {
     every_change: Option<Mark>,
     rules: NewRules,
     reference: Option<NewReference>,
+    padding: Option<Vec<Said<String>>>,
     limit_transitions: Said<u64>,
     limit_time: Option<Said<Amount>>,
     samples: Said<u64>,
@@ -121,6 +123,7 @@ impl Builder {
             every_change: None,
             rules: NewRules::default(),
             reference: None,
+            padding: None,
             limit_transitions: Said::from(Limits::default().transitions),
             limit_time: None,
             samples: Said::from(plan.samples),
@@ -328,6 +331,12 @@ impl Builder {
         self
     }
 
+    /// Where delay may be added to cure what a proof refutes, and nowhere else: gates by name, wires as `net -> gate`.
+    pub fn padding(&mut self, allow: impl IntoIterator<Item = Said<String>>) -> &mut Builder {
+        self.padding = Some(allow.into_iter().collect());
+        self
+    }
+
     /// Faults found elsewhere: [`Builder::finish`] fails with them and its own.
     pub fn faults(&mut self, faults: Faults) -> &mut Builder {
         self.faults.append(faults);
@@ -351,6 +360,7 @@ impl Builder {
         let conditions = conditions::check(&mut context, &self.conditions, &delays.model);
         let outputs = circuit::outputs(&mut context, self.outputs.as_deref(), &network);
         let begin = self.begin_of(&mut context);
+        let padding = padding::check(&mut context, self.padding.as_deref(), &network);
         let stimulus = stimulus::check(&mut context, &self, &delays);
         let rules = rules::check(&mut context, &self.rules, &outputs);
         let reference = reference::check(&mut context, &self, &outputs);
@@ -381,6 +391,7 @@ impl Builder {
             reference: reference.map(Arc::new),
             limits,
             plan,
+            padding,
             conditions,
             notes: in_order(context.notes),
             not_analysed: in_order(context.not_analysed),
