@@ -164,7 +164,7 @@ fn kernel_and_judges(bencher: Bencher<'_, '_>, circuit: &str) {
 }
 
 /// Judges and tally without the kernel: they are told again and again what one run told; the items are events.
-#[divan::bench(args = &CIRCUITS[..3])]
+#[divan::bench(args = [CIRCUITS[0], CIRCUITS[1], CIRCUITS[2]])]
 fn judges_alone(bencher: Bencher<'_, '_>, circuit: &str) {
     let scenario = scenario(circuit);
     let asked = Asked::of(&scenario);
