@@ -2,8 +2,11 @@
 //!
 //! Every benchmark asserts its answer. Items are events (transitions of nets), samples or states.
 
+mod replay;
+
 use divan::counter::ItemsCount;
 use divan::{Bencher, black_box};
+use replay::Record;
 use stillgate::circuit::{Circuit, Function};
 use stillgate::control::Control;
 use stillgate::engine::{Deaf, Observer, Program};
@@ -158,6 +161,55 @@ fn kernel_and_judges(bencher: Bencher<'_, '_>, circuit: &str) {
     let scenario = scenario(circuit);
     let asked = Asked::of(&scenario);
     run_with(bencher, &scenario, Judge::new(&scenario, &asked, Tally::new(&scenario, &asked)));
+}
+
+/// Judges and tally without the kernel: they are told again and again what one run told; the items are events.
+#[divan::bench(args = [CIRCUITS[0], CIRCUITS[1], CIRCUITS[2]])]
+fn judges_alone(bencher: Bencher<'_, '_>, circuit: &str) {
+    let scenario = scenario(circuit);
+    let asked = Asked::of(&scenario);
+    let program = Program::new(&scenario, &Control::default()).expect("it begins at rest");
+    let mut record = Record::default();
+    program.machine().run(&Instance::of(&scenario, &Which::Sample(7)), &Control::default(), &mut record);
+    let mut judge = Judge::new(&scenario, &asked, Tally::new(&scenario, &asked));
+    let mut runs = 0;
+    bencher.counter(ItemsCount::new(record.changes)).bench_local(|| {
+        record.tell(&mut judge);
+        runs += 1;
+    });
+    judge.sink.finish();
+    assert!(judge.sink.windows.iter().all(|window| window.settled == runs), "every window is judged in every run");
+}
+
+/// A latch with four changes of its inputs: eight events a sample.
+fn short() -> Scenario {
+    let mut b = Builder::new("short");
+    b.input("s", true);
+    b.input("r", true);
+    b.gate("q", Function::Nand, ["s", "qn"]).delay(["6", "9", "14"]);
+    b.gate("qn", Function::Nand, ["r", "q"]).delay(["6", "9", "14"]);
+    b.initial("q", false);
+    for (net, value) in [("s", false), ("s", true), ("r", false), ("r", true)] {
+        b.step(NewStep::after("50").set(net, value));
+    }
+    b.rules().glitch_free("q");
+    b.samples(10_000_000);
+    b.finish().expect("the latch is a good scenario")
+}
+
+/// Short samples on one and on two threads: drawing, reset, run, judges and tally; the items are samples.
+#[divan::bench(args = [1, 2], sample_count = 20)]
+fn short_samples(bencher: Bencher<'_, '_>, threads: usize) {
+    const SAMPLES: u64 = 50_000;
+    let scenario = short();
+    let program = Program::new(&scenario, &Control::default()).expect("it begins at rest");
+    let asked = Asked::of(&scenario);
+    bencher.counter(ItemsCount::new(SAMPLES)).bench_local(|| {
+        let tally = run_samples(&scenario, &program, &asked, 0..SAMPLES, threads, &Control::default());
+        assert_eq!((tally.samples, tally.failing), (SAMPLES, 0));
+        assert!(tally.windows.iter().all(|window| window.settled == SAMPLES && window.outcomes.total() == SAMPLES));
+        tally
+    });
 }
 
 /// Samples of the latch, on one and on two threads.

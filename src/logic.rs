@@ -90,11 +90,13 @@ impl Bits {
     }
 
     /// Bit `i`. Panics past the length.
+    #[inline]
     pub fn get(&self, i: usize) -> bool {
         self.0[i >> 6] >> (i & 63) & 1 == 1
     }
 
     /// Sets bit `i`. Panics past the length.
+    #[inline]
     pub fn set(&mut self, i: usize, bit: bool) {
         let mask = 1 << (i & 63);
         let word = &mut self.0[i >> 6];
@@ -102,11 +104,13 @@ impl Bits {
     }
 
     /// Inverts bit `i`. Panics past the length.
+    #[inline]
     pub fn flip(&mut self, i: usize) {
         self.0[i >> 6] ^= 1 << (i & 63);
     }
 
     /// The words, bit 0 of word 0 first.
+    #[inline]
     pub fn words(&self) -> &[u64] {
         &self.0
     }
@@ -117,13 +121,19 @@ impl Bits {
     }
 
     /// Is any bit 1?
+    #[inline]
     pub fn any(&self) -> bool {
         self.0.iter().any(|word| *word != 0)
     }
 
     /// Copies another vector of the same length without allocating.
+    #[inline]
     pub fn copy_from(&mut self, other: &Bits) {
-        self.0.copy_from_slice(&other.0);
+        // for the one word of a small circuit a call would cost more than the copy
+        match (&mut *self.0, &*other.0) {
+            ([ours], [theirs]) => *ours = *theirs,
+            (ours, theirs) => ours.copy_from_slice(theirs),
+        }
     }
 
     /// The indices of the bits that are 1.
@@ -163,22 +173,26 @@ impl State {
     }
 
     /// The value of net number `net`. Panics past the length.
+    #[inline]
     pub fn get(&self, net: usize) -> Value {
         if self.unknown.get(net) { Value::X } else { Value::from(self.ones.get(net)) }
     }
 
     /// Sets the value of net number `net`. Panics past the length.
+    #[inline]
     pub fn set(&mut self, net: usize, value: Value) {
         self.ones.set(net, value == Value::One);
         self.unknown.set(net, value == Value::X);
     }
 
     /// Is any net at X?
+    #[inline]
     pub fn has_unknown(&self) -> bool {
         self.unknown.any()
     }
 
     /// Copies another state of the same length without allocating.
+    #[inline]
     pub fn copy_from(&mut self, other: &State) {
         self.ones.copy_from(&other.ones);
         self.unknown.copy_from(&other.unknown);

@@ -21,7 +21,8 @@ const KEPT: usize = 64;
 
 const ENDLESS: Span = Span::from_fs(u64::MAX);
 
-/// The pulses seen since the window began.
+/// The pulses seen since the window began. Up to the first pulse of a window only `transitions`, `first` and `last` are its
+/// own: most windows have none, and then nothing else is touched.
 #[derive(Clone, Debug)]
 pub struct Pulses {
     bound: Span,
@@ -75,28 +76,41 @@ impl Pulses {
     }
 
     /// A window begins.
+    #[inline]
     pub fn clear(&mut self) {
         self.transitions = 0;
-        self.left = Left::default();
-        self.widest_struck = None;
-        self.stack.clear();
+    }
+
+    /// No pulse: at most one transition.
+    #[inline]
+    pub fn is_empty(&self) -> bool {
+        self.transitions <= 1
     }
 
     /// The net changes.
     #[inline]
     pub fn change(&mut self, at: Time) {
-        if self.transitions > 0 {
-            let pulse = Pulse { start: self.last, width: at.since(self.last) };
-            if self.bound == Span::ZERO {
-                self.left.add(pulse);
-            } else {
-                self.push(pulse);
-            }
-        } else {
-            self.first = at;
+        match self.transitions {
+            0 => self.first = at,
+            _ => self.pulse(at),
         }
         self.transitions += 1;
         self.last = at;
+    }
+
+    /// A pulse ends.
+    fn pulse(&mut self, at: Time) {
+        if self.transitions == 1 {
+            self.left = Left::default();
+            self.widest_struck = None;
+            self.stack.clear();
+        }
+        let pulse = Pulse { start: self.last, width: at.since(self.last) };
+        if self.bound == Span::ZERO {
+            self.left.add(pulse);
+        } else {
+            self.push(pulse);
+        }
     }
 
     /// From the first transition to the last, if there were any.
@@ -106,17 +120,18 @@ impl Pulses {
 
     /// The widest pulse struck out.
     pub fn widest_struck(&self) -> Option<Span> {
-        self.widest_struck
+        self.widest_struck.filter(|_| !self.is_empty())
     }
 
     /// The window ends: what is left.
     pub fn finish(&mut self) -> Left {
+        if self.is_empty() {
+            return Left::default();
+        }
         if self.bound > Span::ZERO && !self.stack.is_empty() {
             self.push(Pulse { start: self.last, width: ENDLESS });
-            for pulse in std::mem::take(&mut self.stack) {
-                if pulse.width != ENDLESS {
-                    self.left.add(pulse);
-                }
+            for pulse in self.stack.drain(..).filter(|pulse| pulse.width != ENDLESS) {
+                self.left.add(pulse);
             }
         }
         self.left

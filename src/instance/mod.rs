@@ -11,6 +11,7 @@ mod perturb;
 mod quantity;
 mod sampler;
 mod strata;
+mod stream;
 
 pub use firings::{Anew, Drawn, Firings};
 pub use numbers::{Cases, Numbers};

@@ -37,6 +37,7 @@ use super::firings::{Anew, Drawn, Firings};
 use super::groups::{Groups, groups_of};
 use super::quantity::{Quantities, Quantity, Target};
 use super::strata::{BOARD_KEYS, SAMPLE_KEYS, Strata};
+use super::stream::Stream;
 use crate::delay::Marginal;
 use crate::logic::Bits;
 use crate::scenario::{Begin, Scenario, Vary};
@@ -55,6 +56,8 @@ pub struct Sampler {
     tries: u64,
     board_plan: Vec<Quantity>,
     sample_plan: Vec<Quantity>,
+    board_stream: Stream,
+    sample_stream: Stream,
     groups: Groups,
     /// What firings are drawn from, with the group of each gate; only for `per-event`.
     anew: Option<(Drawn, Vec<Option<u32>>)>,
@@ -98,7 +101,10 @@ impl Sampler {
                 sample: Strata::new(&mut rng, SAMPLE_KEYS, places(&sample_plan), plan.samples),
             }
         });
+        let stream = |odd: bool, plan: &[Quantity]| Stream::new(&rng, odd, plan.iter().map(|quantity| quantity.place));
         Sampler {
+            board_stream: stream(false, &board_plan),
+            sample_stream: stream(true, &sample_plan),
             rng,
             draw: plan.draw,
             tries: plan.tries,
@@ -117,7 +123,8 @@ impl Sampler {
 
     /// The board of a sample.
     pub fn board_of(&self, sample: u64) -> u64 {
-        sample / self.tries
+        // a division takes as long as much of a short run
+        if self.tries == 1 { sample } else { sample / self.tries }
     }
 
     /// Draws sample `sample` into an instance of this scenario (made by [`Instance::of`]).
@@ -185,20 +192,24 @@ impl Sampler {
     }
 
     fn draw_board(&mut self, board: u64, each: &mut impl FnMut(&Groups, usize, &Quantity, u64)) {
-        let (plan, mut groups) = (std::mem::take(&mut self.board_plan), std::mem::take(&mut self.groups));
-        let strata = self.strata.take();
-        self.rng.set_stream(2 * board);
-        groups.begin(&mut self.rng, strata.as_ref().map(|it| &it.groups), board);
-        let stratum = strata.as_ref().map(|it| (&it.board, board));
-        self.draw_plan(2 * board, &plan, stratum, |number, quantity, u| each(&groups, number, quantity, u));
-        (self.board_plan, self.groups, self.strata) = (plan, groups, strata);
+        let strata = self.strata.as_ref();
+        if !self.groups.how().is_empty() {
+            self.rng.set_stream(2 * board);
+            self.groups.begin(&mut self.rng, strata.map(|it| &it.groups), board);
+        }
+        let numbers = self.board_stream.numbers(board).zip(&self.board_plan).enumerate();
+        for (number, (u, quantity)) in numbers {
+            let u = strata.map_or(u, |it| it.board.number(board, number, u));
+            each(&self.groups, number, quantity, u);
+        }
     }
 
     fn draw_sample(&mut self, sample: u64, each: &mut impl FnMut(usize, &Quantity, u64)) {
-        let (plan, strata) = (std::mem::take(&mut self.sample_plan), self.strata.take());
-        let stratum = strata.as_ref().map(|it| (&it.sample, sample));
-        self.draw_plan(2 * sample + 1, &plan, stratum, each);
-        (self.sample_plan, self.strata) = (plan, strata);
+        let numbers = self.sample_stream.numbers(sample).zip(&self.sample_plan).enumerate();
+        for (number, (u, quantity)) in numbers {
+            let u = self.strata.as_ref().map_or(u, |it| it.sample.number(sample, number, u));
+            each(number, quantity, u);
+        }
     }
 
     /// Draws the start bits of a sample.
@@ -207,35 +218,6 @@ impl Sampler {
         self.rng.set_word_pos(2 * u128::from(self.start_place));
         for gate in 0..self.gates {
             start.set(gate, self.rng.next_u64() >> 63 == 1);
-        }
-    }
-
-    /// Draws the numbers of a plan's quantities; `strata` with the number of the draw, where they are stratified.
-    fn draw_plan(
-        &mut self,
-        stream: u64,
-        plan: &[Quantity],
-        strata: Option<(&Strata, u64)>,
-        mut each: impl FnMut(usize, &Quantity, u64),
-    ) {
-        /// Up to here it is cheaper to draw and drop than to seek.
-        const SKIP: u64 = 16;
-        let Some(first) = plan.first() else { return };
-        self.rng.set_stream(stream);
-        self.rng.set_word_pos(2 * u128::from(first.place));
-        let mut next = first.place;
-        for (number, quantity) in plan.iter().enumerate() {
-            if quantity.place - next > SKIP {
-                self.rng.set_word_pos(2 * u128::from(quantity.place));
-            } else {
-                for _ in next..quantity.place {
-                    self.rng.next_u64();
-                }
-            }
-            next = quantity.place + 1;
-            let u = self.rng.next_u64();
-            let u = strata.map_or(u, |(strata, draw)| strata.number(draw, number, u));
-            each(number, quantity, u);
         }
     }
 }

@@ -16,6 +16,7 @@ mod spread;
 mod stats;
 mod tally;
 mod unseen;
+mod waiting;
 
 pub use cases::{Case, Cases};
 pub use conclude::{conclude, conclude_after, race_breaks, worst_first};

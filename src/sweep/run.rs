@@ -61,7 +61,7 @@ pub fn run_samples(
             control.report(done.fetch_add(to - from, Ordering::Relaxed) + (to - from), total);
         }
         judge.sink.finish();
-        whole.lock().unwrap_or_else(std::sync::PoisonError::into_inner).merge(&judge.sink);
+        whole.lock().unwrap_or_else(std::sync::PoisonError::into_inner).absorb(judge.sink);
     };
     if threads == 1 {
         work();

@@ -61,53 +61,75 @@ impl Spread {
         Spread { exact: Some(BTreeMap::new()), ..Spread::default() }
     }
 
-    /// One more time.
-    pub fn add(&mut self, span: Span) {
-        self.add_many(span.fs(), 1);
+    /// Many more times, in fs; the list is emptied.
+    pub(super) fn add_all(&mut self, times: &mut Vec<u64>) {
+        if times.is_empty() {
+            return;
+        }
+        match self.exact.take() {
+            None => {
+                let (min, max) = times.iter().fold((u64::MAX, 0), |(min, max), fs| (min.min(*fs), max.max(*fs)));
+                self.widen(times.len() as u64, Some(min), Some(max));
+                self.count_all(times.iter().map(|fs| (*fs, 1)));
+            }
+            Some(exact) => {
+                times.sort_unstable();
+                self.widen(times.len() as u64, times.first().copied(), times.last().copied());
+                self.add_exact(exact, times.chunk_by(|a, b| a == b).map(|same| (same[0], same.len() as u64)));
+            }
+        }
+        times.clear();
     }
 
-    fn add_many(&mut self, fs: u64, count: u64) {
-        self.n += count;
-        self.min = Some(self.min.map_or(fs, |min| min.min(fs)));
-        self.max = self.max.max(Some(fs));
-        if let Some(exact) = &mut self.exact {
-            *exact.entry(fs).or_insert(0) += count;
-            if exact.len() <= DISTINCT {
-                return;
-            }
-            for (fs, count) in self.exact.take().into_iter().flatten() {
-                self.count(fs, count);
-            }
+    /// More times, between these.
+    fn widen(&mut self, n: u64, min: Option<u64>, max: Option<u64>) {
+        self.n += n;
+        self.min = [self.min, min].into_iter().flatten().min();
+        self.max = self.max.max(max);
+    }
+
+    /// To the values of this spread, kept exactly so far, others in rising order.
+    fn add_exact(&mut self, ours: BTreeMap<u64, u64>, others: impl Iterator<Item = (u64, u64)>) {
+        let all = both(ours.into_iter(), others);
+        if all.len() <= DISTINCT {
+            self.exact = Some(all.into_iter().collect());
         } else {
-            self.count(fs, count);
+            self.count_all(all.into_iter());
         }
     }
 
-    fn count(&mut self, fs: u64, count: u64) {
-        let (octave, class) = class_of(fs);
-        self.pages.entry(octave).or_insert_with(|| vec![0; CLASSES])[class] += count;
+    /// Counts values in classes. Times of one place are mostly of one octave.
+    fn count_all(&mut self, times: impl Iterator<Item = (u64, u64)>) {
+        let mut times = times.peekable();
+        while let Some((fs, _)) = times.peek() {
+            let octave = class_of(*fs).0;
+            let page = self.pages.entry(octave).or_insert_with(|| vec![0; CLASSES]);
+            while let Some((fs, count)) = times.next_if(|(fs, _)| class_of(*fs).0 == octave) {
+                page[class_of(fs).1] += count;
+            }
+        }
     }
 
     /// All times of another spread.
     pub fn merge(&mut self, other: &Spread) {
         if let Some(exact) = &other.exact {
-            for (fs, count) in exact {
-                self.add_many(*fs, *count);
+            let others = exact.iter().map(|(fs, count)| (*fs, *count));
+            self.widen(other.n, other.min, other.max);
+            match self.exact.take() {
+                Some(ours) => self.add_exact(ours, others),
+                None => self.count_all(others),
             }
             return;
         }
-        for (fs, count) in self.exact.take().into_iter().flatten() {
-            self.count(fs, count);
-        }
+        let ours = self.exact.take();
+        self.count_all(ours.into_iter().flatten());
         for (octave, page) in &other.pages {
             let ours = self.pages.entry(*octave).or_insert_with(|| vec![0; CLASSES]);
             for (ours, theirs) in ours.iter_mut().zip(page) {
                 *ours += theirs;
             }
         }
-        self.n += other.n;
-        self.min = [self.min, other.min].into_iter().flatten().min();
-        self.max = self.max.max(other.max);
+        self.widen(other.n, other.min, other.max);
     }
 
     /// Could these be the times of this many windows at most?
@@ -184,6 +206,17 @@ impl Spread {
     }
 }
 
+/// Two lists of values in rising order, each with a count, as one.
+fn both(a: impl Iterator<Item = (u64, u64)>, b: impl Iterator<Item = (u64, u64)>) -> Vec<(u64, u64)> {
+    let (mut a, mut b) = (a.peekable(), b.peekable());
+    let mut all = Vec::new();
+    while let Some(fs) = a.peek().into_iter().chain(b.peek()).map(|it| it.0).min() {
+        let count = [a.next_if(|it| it.0 == fs), b.next_if(|it| it.0 == fs)].iter().flatten().map(|it| it.1).sum();
+        all.push((fs, count));
+    }
+    all
+}
+
 /// The nearest rank of a share (0 to 1) of `n` values, from 1.
 pub(super) fn rank(n: u64, share: f64) -> u64 {
     ((share * n as f64).ceil() as u64).clamp(1, n.max(1))
@@ -227,14 +260,14 @@ mod tests {
     proptest! {
         #![proptest_config(ProptestConfig { cases: 60, failure_persistence: None, rng_seed: proptest::test_runner::RngSeed::Fixed(3), ..ProptestConfig::default() })]
         #[test]
-        fn merging_any_split_in_any_order_is_the_whole(values in proptest::collection::vec(0u64..1_000_000, 0..4000), cuts in proptest::collection::vec(0usize..4000, 0..5), turn in any::<bool>()) {
+        fn merging_any_split_in_any_order_is_the_whole(values in proptest::collection::vec(0u64..1_000_000, 0..4000), chunk in 1usize..3000, cuts in proptest::collection::vec(0usize..4000, 0..5), turn in any::<bool>()) {
             let mut whole = Spread::new();
-            values.iter().for_each(|v| whole.add(Span::from_fs(*v)));
+            values.chunks(chunk).for_each(|some| whole.add_all(&mut some.to_vec()));
             let mut cuts: Vec<usize> = cuts.into_iter().map(|c| c.min(values.len())).chain([0, values.len()]).collect();
             cuts.sort_unstable();
             let mut parts: Vec<Spread> = cuts.windows(2).map(|w| {
                 let mut part = Spread::new();
-                values[w[0]..w[1]].iter().for_each(|v| part.add(Span::from_fs(*v)));
+                part.add_all(&mut values[w[0]..w[1]].to_vec());
                 part
             }).collect();
             if turn { parts.reverse(); }

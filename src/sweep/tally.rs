@@ -5,15 +5,16 @@ use std::collections::BTreeMap;
 use serde::{Deserialize, Serialize};
 
 use super::lowest::Lowest;
-use super::seen::{Count, Key, Seen, mix};
+use super::seen::{Key, Seen, mix};
 use super::spread::Spread;
+use super::waiting::{Waiting, note};
 use crate::engine::{End, Hit};
-use crate::findings::{Asked, Departed, Departure, Fact, Measure, Reason, Seen as SeenWindow, Sink, Subject};
+use crate::findings::{Asked, Departed, Departure, Fact, Measure, Reason, Routine, Seen as SeenWindow, Sink, Subject};
 use crate::logic::State;
 use crate::scenario::Scenario;
 
 /// From which state to which: the state before a step, and the settled one.
-#[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
+#[derive(Clone, Debug, Default, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct Passage {
     /// Before.
@@ -96,24 +97,6 @@ pub struct WindowTally {
     pub settling: Spread,
     /// Lengths of cut windows.
     pub cut_after: Spread,
-    #[serde(skip)]
-    streak: Streak,
-}
-
-/// The passage of the samples just before, not yet in the tally: most samples do what the last one did.
-#[derive(Clone, Debug, Default)]
-struct Streak {
-    passage: Option<Passage>,
-    has_before: bool,
-    hash: u64,
-    order: u64,
-    count: Option<Count>,
-}
-
-impl PartialEq for Streak {
-    fn eq(&self, _: &Streak) -> bool {
-        true
-    }
 }
 
 /// Answers to one question.
@@ -188,6 +171,8 @@ pub struct Tally {
     has_failed: bool,
     #[serde(skip)]
     board: Option<u64>,
+    #[serde(skip)]
+    waiting: Waiting,
 }
 
 fn merge_worst<T: Ord + Copy>(ours: &mut Option<(T, u64)>, theirs: Option<(T, u64)>, worse: fn(&T, &T) -> bool) {
@@ -216,50 +201,17 @@ impl WindowTally {
             departed: None,
             settling: Spread::new(),
             cut_after: Spread::new(),
-            streak: Streak::default(),
         }
     }
 
-    fn passed(&mut self, seen: &SeenWindow<'_>, sample: u64) {
-        let streak = &mut self.streak;
-        let same = |passage: &Passage| {
-            passage.after == *seen.state && passage.before.as_ref().is_none_or(|before| Some(before) == seen.before)
-        };
-        let known = streak.has_before == seen.before.is_some() && streak.passage.as_ref().is_some_and(same);
-        if known && streak.order == seen.order {
-            let count = streak.count.get_or_insert(Count { count: 0, first: sample });
-            count.count += 1;
-            count.first = count.first.min(sample);
+    /// Windows that settled.
+    fn passed(&mut self, passage: &Passage, order: u64, count: u64, first: u64) {
+        self.outcomes.add(&passage.after, count, first);
+        if passage.before.is_none() {
             return;
         }
-        self.flush();
-        let streak = &mut self.streak;
-        if !known {
-            match &mut streak.passage {
-                // reuse the memory of the last one
-                Some(Passage { before: Some(before), after }) if seen.before.is_some() => {
-                    before.copy_from(seen.before.unwrap_or(seen.state));
-                    after.copy_from(seen.state);
-                }
-                Some(Passage { before: None, after }) if seen.before.is_none() => after.copy_from(seen.state),
-                other => *other = Some(Passage { before: seen.before.cloned(), after: seen.state.clone() }),
-            }
-            streak.has_before = seen.before.is_some();
-            streak.hash = streak.passage.as_ref().map_or(0, Passage::mark);
-        }
-        streak.order = seen.order;
-        streak.count = Some(Count { count: 1, first: sample });
-    }
-
-    fn flush(&mut self) {
-        if let (Some(passage), Some(count)) = (&self.streak.passage, self.streak.count.take()) {
-            self.outcomes.add(&passage.after, count.count, count.first);
-            if self.streak.has_before {
-                self.passages.add(passage, count.count, count.first);
-                let order = Order { passage: self.streak.hash, order: self.streak.order };
-                self.orders.add(&order, count.count, count.first);
-            }
-        }
+        self.passages.add(passage, count, first);
+        self.orders.add(&Order { passage: passage.mark(), order }, count, first);
     }
 
     fn merge(&mut self, other: &WindowTally) {
@@ -346,6 +298,7 @@ impl Tally {
             sample: 0,
             has_failed: false,
             board: None,
+            waiting: Waiting::new(scenario.circuit.net_count(), scenario.stimulus.moments.len(), asked.questions.len()),
         }
     }
 
@@ -367,7 +320,48 @@ impl Tally {
     /// All samples are in: what waits is added.
     pub fn finish(&mut self) {
         self.end_board();
-        self.windows.iter_mut().for_each(WindowTally::flush);
+        (self.sample, self.has_failed) = (0, false);
+        for moment in 0..self.waiting.moments.len() {
+            self.add_streak(moment);
+            self.add_settling(moment);
+            self.add_cut_after(moment);
+            let routine = std::mem::take(&mut self.waiting.moments[moment].routine);
+            let window = &mut self.windows[moment];
+            window.reached += routine;
+            window.named += routine;
+            window.settled += routine;
+            for question in &self.waiting.questions[moment] {
+                self.waiting.kept[*question as usize] += routine;
+            }
+        }
+        for (row, kept) in self.rows.iter_mut().zip(&mut self.waiting.kept) {
+            row.judged += std::mem::take(kept);
+        }
+    }
+
+    /// A window that settled with no X, and with none before where that state is known.
+    #[inline]
+    fn passed(&mut self, moment: usize, before: Option<&State>, after: &State, order: u64) {
+        if !self.waiting.goes_on(moment, before, after, order) {
+            self.add_streak(moment);
+            self.waiting.begin(moment, before, after, order, self.sample);
+        }
+    }
+
+    fn add_streak(&mut self, moment: usize) {
+        if let Some((passage, order, count, first)) = self.waiting.take(moment) {
+            self.windows[moment].passed(passage, order, count, first);
+        }
+    }
+
+    #[cold]
+    fn add_settling(&mut self, moment: usize) {
+        self.windows[moment].settling.add_all(&mut self.waiting.moments[moment].settling);
+    }
+
+    #[cold]
+    fn add_cut_after(&mut self, moment: usize) {
+        self.windows[moment].cut_after.add_all(&mut self.waiting.cut_after[moment]);
     }
 
     fn end_board(&mut self) {
@@ -388,6 +382,14 @@ impl Tally {
             if let Some(fact) = self.facts.get_mut(&subject) {
                 fact.board(count, part.samples);
             }
+        }
+    }
+
+    /// Adds the finished tally of other samples of the same sweep, which is taken as it is where there is none yet.
+    pub(super) fn absorb(&mut self, other: Tally) {
+        match self.samples {
+            0 => *self = Tally { waiting: Waiting::default(), ..other },
+            _ => self.merge(&other),
         }
     }
 
@@ -464,14 +466,21 @@ impl Sink for Tally {
     }
 
     fn window(&mut self, seen: &SeenWindow<'_>) {
-        let sample = self.sample;
-        let window = &mut self.windows[seen.moment as usize];
+        let (moment, sample) = (seen.moment as usize, self.sample);
+        let window = &mut self.windows[moment];
         window.began_before_rest += u64::from(!seen.began_at_rest);
         match seen.end {
             End::Settled => {
                 window.settled += 1;
-                window.settling.add(seen.time);
-                window.passed(seen, sample);
+                if seen.state.has_unknown() || seen.before.is_some_and(State::has_unknown) {
+                    let passage = Passage { before: seen.before.cloned(), after: seen.state.clone() };
+                    window.passed(&passage, seen.order, 1, sample);
+                } else {
+                    self.passed(moment, seen.before, seen.state, seen.order);
+                }
+                if note(&mut self.waiting.moments[moment].settling, seen.time.fs()) {
+                    self.add_settling(moment);
+                }
             }
             End::Oscillating { .. } => window.oscillating += 1,
             End::Unsettled(hit) => {
@@ -480,8 +489,29 @@ impl Sink for Tally {
             }
             End::Cut => {
                 window.cut += 1;
-                window.cut_after.add(seen.time);
+                if note(&mut self.waiting.cut_after[moment], seen.time.fs()) {
+                    self.add_cut_after(moment);
+                }
             }
         }
+    }
+
+    #[inline]
+    fn kept(&mut self, question: u32) {
+        self.waiting.kept[question as usize] += 1;
+    }
+
+    #[inline]
+    fn routine(&mut self, it: &Routine<'_>) {
+        let moment = it.moment as usize;
+        let waiting = &mut self.waiting.moments[moment];
+        if waiting.routine == 0 {
+            self.waiting.questions[moment] = it.questions.to_vec();
+        }
+        waiting.routine += 1;
+        if note(&mut waiting.settling, it.time.fs()) {
+            self.add_settling(moment);
+        }
+        self.passed(moment, Some(it.before), it.state, it.order);
     }
 }

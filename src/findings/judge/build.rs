@@ -4,15 +4,15 @@ use super::edges::{MinPulse, Timing};
 use super::nets::{Count, NONE, Settle, Watch};
 use super::reference::AgainstReference;
 use super::sink::Sink;
-use super::span::Cone;
+use super::span::{ConeSet, Cones};
 use super::states::{Expect, Never, NotAtRest};
-use super::{Ear, Judge};
+use super::{Ear, Heard, Judge, Usual};
 use crate::circuit::NetId;
 use crate::engine::End;
 use crate::findings::asked::{Asked, RuleKey};
 use crate::findings::pulses::Pulses;
 use crate::logic::{State, Value};
-use crate::scenario::{Before, Begin, Scenario, Swallowed};
+use crate::scenario::{Before, Begin, Oscillation, Scenario, Swallowed};
 use crate::time::{Span, Time};
 
 impl<S: Sink> Judge<S> {
@@ -27,15 +27,16 @@ impl<S: Sink> Judge<S> {
         let single = |rule: RuleKey, index: u32, net: Option<NetId>| asked.find(rule, index, net, None).unwrap_or(NONE);
 
         let mut ears: Vec<Vec<Ear>> = vec![Vec::new(); circuit.net_count()];
+        let mut cones = Cones::new();
         let mut watches = Vec::new();
         let mut settles = Vec::new();
         for net in &scenario.watched {
-            let cone = Cone::of(circuit, &[*net]);
+            let cone = cones.of(&[*net]);
             let rule = rules.glitch_free.iter().position(|rule| rule.net == *net);
             ears[net.index()].push(Ear::Watch(watches.len() as u32));
             watches.push(Watch {
                 net: *net,
-                cone: cone.clone(),
+                cone,
                 ruled: rule.is_some(),
                 bound: rule.map_or(Span::ZERO, |i| rules.glitch_free[i].shorter_than),
                 questions: match rule {
@@ -60,7 +61,7 @@ impl<S: Sink> Judge<S> {
                     ears[net.index()].push(Ear::Settle(settles.len() as u32));
                     settles.push(Settle {
                         net: *net,
-                        cone: cone.clone(),
+                        cone,
                         questions,
                         bounds: bounds.clone(),
                         window: None,
@@ -82,7 +83,7 @@ impl<S: Sink> Judge<S> {
                 ears[wanted.net.index()].push(Ear::Count(counts.len() as u32));
                 counts.push(Count {
                     wanted: *wanted,
-                    cone: Cone::of(circuit, &[wanted.net]),
+                    cone: cones.of(&[wanted.net]),
                     moment,
                     question: asked.find(RuleKey::Edges, 0, Some(wanted.net), Some(moment)).unwrap_or(NONE),
                     window: None,
@@ -94,7 +95,7 @@ impl<S: Sink> Judge<S> {
                 let nets: Vec<NetId> = expect.alternatives.iter().flatten().map(|(net, _)| *net).collect();
                 expects.push(Expect {
                     alternatives: expect.alternatives.clone(),
-                    cone: Cone::of(circuit, &nets),
+                    cone: cones.of(&nets),
                     moment,
                     question: asked.find(RuleKey::Expect, 0, None, Some(moment)).unwrap_or(NONE),
                     window: None,
@@ -102,16 +103,19 @@ impl<S: Sink> Judge<S> {
             }
         }
         let at_rest = matches!(scenario.begin, Begin::AtRest { .. });
-        let not_at_rest = rules.never_at_rest.iter().enumerate().map(|(i, rule)| {
+        let each = rules.never_at_rest.iter().enumerate();
+        let not_at_rest = each.map(|(i, rule)| {
             let nets: Vec<NetId> = rule.state.iter().map(|(net, _)| *net).collect();
             NotAtRest {
                 pattern: rule.state.clone(),
-                cone: Cone::of(circuit, &nets),
+                cone: cones.of(&nets),
                 at_start: single(RuleKey::NeverAtRest, i as u32, None),
                 questions: by_rule(RuleKey::NeverAtRest, i as u32, None),
                 window: None,
             }
         });
+        let not_at_rest: Vec<NotAtRest> = not_at_rest.collect();
+        cones.finish(circuit);
         let nevers: Vec<Never> = rules
             .never
             .iter()
@@ -160,15 +164,32 @@ impl<S: Sink> Judge<S> {
                 by_moment[moment as usize].push(q as u32);
             }
         }
-        let mut ear_start = vec![0u32];
         let mut flat = Vec::new();
-        for list in ears {
+        let heard = ears.into_iter().zip(circuit.nets()).map(|(list, net)| {
+            let first = flat.len() as u32;
             flat.extend(list);
-            ear_start.push(flat.len() as u32);
-        }
+            Heard { first, last: flat.len() as u32, in_loop: circuit.in_loop(net) }
+        });
+        let heard = heard.collect();
         let said = stimulus.moments.iter().map(|moment| stimulus.step_of(moment).and_then(|step| step.oscillation));
         let own_oscillation = said.clone().map(|own| own.is_some()).collect();
-        let oscillation = said.map(|own| own.unwrap_or(rules.oscillation)).collect();
+        let oscillation: Vec<Oscillation> = said.map(|own| own.unwrap_or(rules.oscillation)).collect();
+        let race_questions = by_rule(RuleKey::CriticalRace, 0, None);
+        let oscillation_questions = by_rule(RuleKey::Oscillation, 0, None);
+        let before_rest_questions = match rules.before_rest {
+            Before::Forbidden => by_rule(RuleKey::BeforeRest, 0, None),
+            Before::Allowed => vec![NONE; moments],
+        };
+        let usual = (0..moments).map(|m| {
+            let asked = [before_rest_questions[m], oscillation_questions[m], race_questions[m]];
+            // an oscillation that is wanted and did not come is more than routine
+            let wanted = oscillation_questions[m] != NONE && oscillation[m] == Oscillation::Required;
+            Usual {
+                routine: !wanted && scenario.begin != Begin::Unknown,
+                questions: asked.into_iter().filter(|question| *question != NONE).collect(),
+            }
+        });
+        let usual = usual.collect();
         let whens = asked.questions.iter().enumerate().filter(|(_, q)| q.rule == RuleKey::When);
         let when_questions = whens.filter_map(|(q, question)| Some((question.moment?, q as u32))).collect();
         Judge {
@@ -178,41 +199,43 @@ impl<S: Sink> Judge<S> {
             oscillation,
             own_oscillation,
             required: asked.find(RuleKey::Oscillation, 0, None, None),
-            race_questions: by_rule(RuleKey::CriticalRace, 0, None),
-            oscillation_questions: by_rule(RuleKey::Oscillation, 0, None),
-            before_rest_questions: match rules.before_rest {
-                Before::Forbidden => by_rule(RuleKey::BeforeRest, 0, None),
-                Before::Allowed => vec![NONE; moments],
-            },
+            race_questions,
+            oscillation_questions,
+            before_rest_questions,
             when_questions,
             swallowed_broken: vec![false; swallowed_questions.len()],
             swallowed_questions,
             by_moment,
-            ear_start,
+            heard,
             ears: flat,
-            in_loop: circuit.nets().map(|net| circuit.in_loop(net)).collect(),
+            keeps_values: !nevers.is_empty() || !min_pulses.is_empty(),
+            usual,
+            touched: ConeSet::none(&cones),
+            unclean: ConeSet::none(&cones),
+            pending: ConeSet::none(&cones),
+            cones,
+            only_watches: settles.is_empty() && counts.is_empty() && expects.is_empty() && not_at_rest.is_empty(),
             watches,
             settles,
             counts,
             expects,
-            not_at_rest: not_at_rest.collect(),
+            not_at_rest,
             nevers,
             timings,
             min_pulses,
             against_reference: AgainstReference::of(scenario, asked),
-            never_dirty: false,
-            timing_dirty: false,
+            due: 0,
             moment: None,
             opened: Time::ZERO,
+            routine: false,
             oscillation_of: Vec::new(),
-            reached: vec![false; moments],
+            run: 0,
+            reached: vec![0; moments],
             reached_count: 0,
             values: State::zeros(circuit.net_count()),
             before: State::zeros(circuit.net_count()),
             has_before: false,
             order: 0,
-            order_open: false,
-            pending: Vec::new(),
             shut: End::Settled,
             unsettled: false,
             oscillated: false,

@@ -1,7 +1,7 @@
 //! Judges of single nets in their own windows: glitches, settling, numbers of transitions.
 
 use super::sink::Sink;
-use super::span::{Cone, NetWindow, Shut};
+use super::span::{NetWindow, Shut};
 use crate::circuit::NetId;
 use crate::findings::pulses::Pulses;
 use crate::findings::{Fact, Kind, Measure, Reason, Shape, Subject};
@@ -13,6 +13,7 @@ use crate::time::{Span, Time};
 pub(super) type ByMoment = Vec<u32>;
 pub(super) const NONE: u32 = u32::MAX;
 
+#[inline]
 fn asked(by_moment: &ByMoment, moment: u32) -> Option<u32> {
     by_moment.get(moment as usize).copied().filter(|question| *question != NONE)
 }
@@ -21,7 +22,7 @@ fn asked(by_moment: &ByMoment, moment: u32) -> Option<u32> {
 #[derive(Clone, Debug)]
 pub(super) struct Watch {
     pub net: NetId,
-    pub cone: Cone,
+    pub cone: u32,
     /// Is the net under `glitch_free`?
     pub ruled: bool,
     pub bound: Span,
@@ -37,6 +38,7 @@ pub(super) struct Watch {
 }
 
 impl Watch {
+    #[inline]
     pub(super) fn open(&mut self, window: NetWindow, state: &State) {
         self.window = Some(window);
         self.before = state.get(self.net.index());
@@ -61,13 +63,25 @@ impl Watch {
     }
 
     /// `spared`: an oscillation in this window is allowed, and nothing is asked of it.
+    #[inline]
     pub(super) fn close(&mut self, shut: &Shut<'_>, spared: bool, state: &State, sink: &mut impl Sink) {
         let Some(window) = self.window.take() else { return };
+        // most windows: all is known and there is no pulse to be wide or narrow
+        if self.pulses.is_empty() && !self.unknown && window.obstacle(self.cone, shut).is_none() {
+            if let Some(question) = asked(&self.questions, window.moment) {
+                sink.kept(question);
+            }
+            return;
+        }
+        self.judge(window, shut, spared, state, sink);
+    }
+
+    fn judge(&mut self, window: NetWindow, shut: &Shut<'_>, spared: bool, state: &State, sink: &mut impl Sink) {
         let question = asked(&self.questions, window.moment);
         let after = state.get(self.net.index());
         let hidden = self.hidden(after);
         let unresolved = self.unknown && hidden.is_none();
-        let obstacle = window.obstacle(&self.cone, shut).or(unresolved.then_some(Reason::Unresolved));
+        let obstacle = window.obstacle(self.cone, shut).or(unresolved.then_some(Reason::Unresolved));
         match obstacle {
             Some(Reason::Oscillating) if spared => return,
             Some(reason) => {
@@ -129,7 +143,7 @@ impl Watch {
 #[derive(Clone, Debug)]
 pub(super) struct Settle {
     pub net: NetId,
-    pub cone: Cone,
+    pub cone: u32,
     /// The question and the bound of each moment.
     pub questions: ByMoment,
     pub bounds: Vec<Span>,
@@ -148,7 +162,7 @@ impl Settle {
         let bound = self.bounds[window.moment as usize];
         let took = self.last.map_or(Span::ZERO, |last| last.since(window.settle_from));
         let slack = bound.fs() as i64 - took.fs() as i64;
-        match window.obstacle(&self.cone, shut) {
+        match window.obstacle(self.cone, shut) {
             Some(Reason::Oscillating) if spared => return,
             Some(Reason::BeganBeforeRest) => return sink.not_judged(question, Reason::BeganBeforeRest),
             Some(reason) if slack >= 0 => return sink.not_judged(question, reason),
@@ -175,7 +189,7 @@ impl Settle {
 #[derive(Clone, Debug)]
 pub(super) struct Count {
     pub wanted: EdgeCount,
-    pub cone: Cone,
+    pub cone: u32,
     pub moment: u32,
     pub question: u32,
     pub window: Option<NetWindow>,
@@ -200,7 +214,7 @@ impl Count {
     pub(super) fn close(&mut self, shut: &Shut<'_>, sink: &mut impl Sink) {
         let Some(window) = self.window.take() else { return };
         let unresolved = self.unknown.then_some(Reason::Unresolved);
-        if let Some(reason) = window.obstacle(&self.cone, shut).or(unresolved) {
+        if let Some(reason) = window.obstacle(self.cone, shut).or(unresolved) {
             return sink.not_judged(self.question, reason);
         }
         let wanted = u64::from(self.wanted.least)..=u64::from(self.wanted.most);

@@ -11,6 +11,11 @@ pub trait Sink {
     fn judged(&mut self, question: u32, broken: bool, slack: Option<i64>);
     /// A question could not be judged in this run.
     fn not_judged(&mut self, question: u32, reason: Reason);
+    /// A question was judged in this run, kept, and has no number: [`Sink::judged`] in the case that is met most.
+    #[inline]
+    fn kept(&mut self, question: u32) {
+        self.judged(question, false, None);
+    }
     /// Something was found; at most once a run for each subject.
     fn fact(&mut self, fact: Fact);
     /// A window ended in a state that the reference does not allow; told before [`Sink::window`], once for each window.
@@ -19,6 +24,38 @@ pub trait Sink {
     fn reached(&mut self, moment: u32, named: bool);
     /// A window ended.
     fn window(&mut self, window: &Seen<'_>);
+    /// A window ended in which nothing but the usual happened; in its one call it tells all that the others would.
+    #[inline]
+    fn routine(&mut self, routine: &Routine<'_>) {
+        self.reached(routine.moment, true);
+        routine.questions.iter().for_each(|question| self.kept(*question));
+        self.window(&Seen {
+            moment: routine.moment,
+            before: Some(routine.before),
+            began_at_rest: true,
+            end: End::Settled,
+            state: routine.state,
+            time: routine.time,
+            order: routine.order,
+        });
+    }
+}
+
+/// A window of one moment alone, from rest to rest, with no X before or after, which keeps all that is asked of it.
+#[derive(Debug)]
+pub struct Routine<'a> {
+    /// The moment.
+    pub moment: u32,
+    /// The questions that it keeps, none of which has a number: in each such window of a moment the same.
+    pub questions: &'a [u32],
+    /// The state before its step.
+    pub before: &'a State,
+    /// The state at its end.
+    pub state: &'a State,
+    /// From the last input change to the last event.
+    pub time: Span,
+    /// A hash of the order in which loop nets changed.
+    pub order: u64,
 }
 
 /// A window that ended.

@@ -1,7 +1,7 @@
 //! Judges of partial states: where nets must rest, where they must not, what must never show.
 
 use super::sink::Sink;
-use super::span::{Cone, NetWindow, Shut, reason_of};
+use super::span::{NetWindow, Shut, reason_of};
 use crate::engine::End;
 use crate::findings::{Fact, Kind, Measure, Reason, Subject};
 use crate::logic::{State, Value};
@@ -49,7 +49,7 @@ pub fn matches_any(alternatives: &[Alternative], state: &State) -> Match {
 #[derive(Clone, Debug)]
 pub(super) struct Expect {
     pub alternatives: Vec<Alternative>,
-    pub cone: Cone,
+    pub cone: u32,
     pub moment: u32,
     pub question: u32,
     pub window: Option<NetWindow>,
@@ -58,12 +58,12 @@ pub(super) struct Expect {
 impl Expect {
     pub(super) fn close(&mut self, shut: &Shut<'_>, state: &State, sink: &mut impl Sink) {
         let Some(window) = self.window.take() else { return };
-        if let Some(reason) = window.obstacle(&self.cone, shut) {
+        if let Some(reason) = window.obstacle(self.cone, shut) {
             return sink.not_judged(self.question, reason);
         }
         match matches_any(&self.alternatives, state) {
             Match::Maybe => sink.not_judged(self.question, Reason::Unresolved),
-            Match::Yes => sink.judged(self.question, false, None),
+            Match::Yes => sink.kept(self.question),
             Match::No => {
                 sink.judged(self.question, true, None);
                 sink.fact(plain_fact(Kind::Expect, self.question, Some(self.moment)));
@@ -81,7 +81,7 @@ fn plain_fact(kind: Kind, question: u32, moment: Option<u32>) -> Fact {
 #[derive(Clone, Debug)]
 pub(super) struct NotAtRest {
     pub pattern: Alternative,
-    pub cone: Cone,
+    pub cone: u32,
     /// The question of the state at the start.
     pub at_start: u32,
     /// The question of each moment.
@@ -104,7 +104,7 @@ impl NotAtRest {
         if question == super::nets::NONE {
             return;
         }
-        match window.obstacle(&self.cone, shut) {
+        match window.obstacle(self.cone, shut) {
             Some(Reason::Oscillating) if spared => {}
             Some(reason) => sink.not_judged(question, reason),
             None => self.judge(question, Some(window.moment), state, sink),
