@@ -29,6 +29,7 @@ mod parts;
 mod paths;
 mod per_event;
 mod proofs;
+mod scale;
 mod searches;
 mod support;
 mod sweeps_agree;
