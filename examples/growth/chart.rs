@@ -155,8 +155,8 @@ fn name(chart: &mut Axes<'_, '_>, series: &Series) -> Result<(), Box<dyn Error>>
         Name::Above => ((first.0, first.1 * 5.0), (HPos::Left, VPos::Bottom)),
         Name::Below => ((first.0 * 1.7, first.1), (HPos::Left, VPos::Top)),
         Name::Behind => ((last.0 * 1.12, last.1), (HPos::Left, VPos::Center)),
-        Name::Over => ((last.0 * 0.9, last.1 * 1.08), (HPos::Right, VPos::Bottom)),
-        Name::Under => ((last.0 * 0.9, last.1 * 0.9), (HPos::Right, VPos::Top)),
+        Name::Over => ((last.0, last.1 * 1.25), (HPos::Right, VPos::Bottom)),
+        Name::Under => ((last.0, last.1 * 0.5), (HPos::Right, VPos::Top)),
     };
     let style = text(11.0, series.ink).pos(Pos::new(side.0, side.1));
     chart.draw_series([Text::new(series.name, place, style)])?;

@@ -143,10 +143,10 @@ fn draw(table: &Path, file: &Path) -> Result<(), Box<dyn Error>> {
             "building a scenario, its plan and a case [s]",
             1e-4..100.0,
             &power as _,
-            both(&building, [Name::Over, Name::Under]),
+            both(&building, [Name::Under, Name::Over]),
         ),
-        panel("run [ns an event]", 1.0..10_000.0, &tens as _, both(&number(7), [Name::Over, Name::Under])),
-        panel("memory [bytes a gate]", 10.0..10_000.0, &tens as _, both(&bytes, [Name::Over, Name::Under])),
+        panel("run [ns an event]", 1.0..10_000.0, &tens as _, both(&number(7), [Name::Under, Name::Over])),
+        panel("memory [bytes a gate]", 10.0..10_000.0, &tens as _, both(&bytes, [Name::Under, Name::Over])),
     ];
     let note = "Rings of three inverting gates, tied together by XORs, all at work; a grid of 20 rows of XORs, four steps. \
                 Straight lines of slope 1 are linear growth.";

@@ -97,11 +97,11 @@ fn a_wide_circuit_gets_the_table_of_changes_too() {
     let output = stillgate(folder.path(), &["run", "wide.toml", "--out", "out"]);
     assert!(output.status.success(), "{}", String::from_utf8_lossy(&output.stderr));
     let said = String::from_utf8_lossy(&output.stderr);
-    assert!(said.contains("waves-typ.csv is left out") && said.contains("changes-typ.csv"), "{said}");
-    let table = std::fs::read_to_string(folder.path().join("out/changes-typ.csv")).unwrap();
+    assert!(said.contains("waves-typical.csv is left out") && said.contains("changes-typical.csv"), "{said}");
+    let table = std::fs::read_to_string(folder.path().join("out/changes-typical.csv")).unwrap();
     assert!(table.lines().count() > 41_000, "1,001 nets at the start, then 40,000 transitions");
     let document: Value =
-        serde_json::from_slice(&std::fs::read(folder.path().join("out/run-typ.json")).unwrap()).unwrap();
+        serde_json::from_slice(&std::fs::read(folder.path().join("out/run-typical.json")).unwrap()).unwrap();
     assert_eq!((&document["waves_truncated"], &document["waves_until"]), (&false.into(), &Value::Null));
 }
 
@@ -110,11 +110,11 @@ fn a_table_that_cannot_be_written_ends_the_run_and_leaves_nothing() {
     let folder = tempfile::tempdir().unwrap();
     std::fs::write(folder.path().join("long.toml"), rings(4, 1_200_000)).unwrap();
     // where the table would be written beside its place there is a folder
-    std::fs::create_dir_all(folder.path().join("out/.changes-typ.csv.part")).unwrap();
+    std::fs::create_dir_all(folder.path().join("out/.changes-typical.csv.part")).unwrap();
     let output = stillgate(folder.path(), &["run", "long.toml", "--out", "out"]);
     assert_eq!(output.status.code(), Some(2));
-    assert!(String::from_utf8_lossy(&output.stderr).contains("changes-typ.csv"));
-    assert_eq!(names(&folder.path().join("out")), [".changes-typ.csv.part"], "nothing but what was there");
+    assert!(String::from_utf8_lossy(&output.stderr).contains("changes-typical.csv"));
+    assert_eq!(names(&folder.path().join("out")), [".changes-typical.csv.part"], "nothing but what was there");
 }
 
 #[test]
