@@ -115,13 +115,13 @@ pub fn cost(network: Network) -> Cost {
 }
 
 /// Seconds that this process has been on a processor.
-fn processor() -> Option<f64> {
+pub fn processor() -> Option<f64> {
     let text = std::fs::read_to_string("/proc/self/schedstat").ok()?;
     Some(text.split_whitespace().next()?.parse::<f64>().ok()? * 1e-9)
 }
 
 /// Most memory that this process has had, megabytes.
-fn peak() -> Option<f64> {
+pub fn peak() -> Option<f64> {
     let text = std::fs::read_to_string("/proc/self/status").ok()?;
     let line = text.lines().find_map(|line| line.strip_prefix("VmHWM:"))?;
     Some(line.trim().strip_suffix("kB")?.trim().parse::<f64>().ok()? * 1.024e-3)

@@ -1,4 +1,4 @@
-//! Networks of any size with a known answer, for the benchmarks, for `examples/growth.rs` and for the tests.
+//! Networks of any size with a known answer, for the benchmarks, for `examples/growth/` and for the tests.
 
 use stillgate::circuit::{Circuit, Function, GateSpec, NetId};
 

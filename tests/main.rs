@@ -32,6 +32,7 @@ mod paths;
 mod per_event;
 mod proofs;
 mod races;
+mod scale;
 mod searches;
 mod support;
 mod sweeps_agree;

@@ -3,6 +3,7 @@
 //! Nets are numbered inputs first, then one net a gate, each in the order in which it was given.
 
 mod compiled;
+mod cut;
 mod expr;
 mod function;
 mod strongly;
@@ -188,18 +189,6 @@ impl Circuit {
         }
 
         let gate_sources = |g: usize| &sources[source_start[g] as usize..source_start[g + 1] as usize];
-        let mut wire_of: FxHashMap<(NetId, GateId), WireId> = FxHashMap::default();
-        for (w, &(net, gate)) in wires.iter().enumerate() {
-            let reads = gate.index() < functions.len() && gate_sources(gate.index()).iter().any(|s| s.0 == net);
-            if !reads || wire_of.insert((net, gate), WireId(w as u32)).is_some() {
-                let name = |i: usize| names.get(i).map_or_else(|| "?".to_string(), ToString::to_string);
-                return Err(CircuitError::NoSuchWire {
-                    net: name(net.index()),
-                    gate: name(input_count + gate.index()),
-                });
-            }
-        }
-
         let mut fan_start = vec![0u32; nets + 1];
         for (net, _) in &sources {
             fan_start[net.index() + 1] += 1;
@@ -212,9 +201,23 @@ impl Circuit {
         for g in 0..functions.len() {
             let gate = GateId(g as u32);
             for &(net, weight) in gate_sources(g) {
-                let wire = wire_of.get(&(net, gate)).copied();
-                fan[next[net.index()] as usize] = Reader { gate, weight, wire };
+                fan[next[net.index()] as usize] = Reader { gate, weight, wire: None };
                 next[net.index()] += 1;
+            }
+        }
+        for (w, &(net, gate)) in wires.iter().enumerate() {
+            // the gates that read a net are in gate order
+            let ends = fan_start.get(net.index()..=net.index() + 1);
+            let readers = ends.map_or(0..0, |ends| ends[0] as usize..ends[1] as usize);
+            let readers = &mut fan[readers];
+            let place = readers.binary_search_by_key(&gate, |reader| reader.gate);
+            match place {
+                Ok(at) if readers[at].wire.is_none() => readers[at].wire = Some(WireId(w as u32)),
+                _ => {
+                    let name = |i: usize| names.get(i).map_or_else(|| "?".to_string(), ToString::to_string);
+                    let (net, gate) = (name(net.index()), name(input_count + gate.index()));
+                    return Err(CircuitError::NoSuchWire { net, gate });
+                }
             }
         }
         let topology = Topology::of(input_count, &source_start, &sources, &fan_start, &fan);

@@ -5,6 +5,7 @@ use std::path::PathBuf;
 use clap::builder::PossibleValuesParser;
 use clap::{Args, Parser, Subcommand};
 
+use crate::output::json;
 use crate::scenario::Plan;
 use crate::sweep::Until;
 
@@ -263,6 +264,9 @@ pub struct Looking {
     pub input: Input,
     #[command(flatten)]
     pub folder: Folder,
+    /// Most values of nets that one list of states of the JSON holds; beyond that it is cut and marked
+    #[arg(long, value_name = "N", default_value_t = json::MOST_VALUES)]
+    pub most_values: usize,
 }
 
 #[derive(Debug, Args)]

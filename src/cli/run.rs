@@ -2,16 +2,21 @@
 
 use std::path::Path;
 use std::process::ExitCode;
+use std::sync::atomic::Ordering;
 
 use super::args::Running;
 use super::common::{
-    Failure, called, control, finish, folder, load, options, overrides, page, program, say, with_draws, write,
+    Failure, called, control, finish, folder, load, options, overrides, page, program, say, say_aside, with_draws,
+    write,
 };
 use crate::circuit::NetId;
 use crate::delay::Marginal;
 use crate::findings::Asked;
 use crate::instance::{Instance, PERTURBATIONS, Which};
+use crate::output::bundle::WriteError;
 use crate::output::instance::write_instance;
+use crate::output::stream::Stream;
+use crate::output::waves::Overflow;
 use crate::output::{bundle, json, text};
 use crate::reader;
 use crate::review;
@@ -29,8 +34,15 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     let (control, bar) = control(true, "run");
     let program = program(&scenario, &control)?;
     let asked = Asked::of(&scenario);
-    let report = review::run_one(&scenario, &program, &asked, which, &control);
+    // a run that is too long to be kept writes its transitions as they come
+    let table = folder.join(format!("changes-{}.csv", bundle::safe(&which.words())));
+    let give_up = || control.cancel.store(true, Ordering::Relaxed);
+    let overflow = Overflow::new(&scenario, review::MOST_KEPT as usize, || Stream::open(&table), &give_up);
+    let (report, overflow) = review::run_heard(&scenario, &program, &asked, which, &control, overflow);
     finish(bar);
+    let too_wide = report.as_ref().is_some_and(|report| bundle::table_fits(&scenario, report).is_err());
+    let unwritten = |source| WriteError::File { file: table.clone(), source };
+    let changes = overflow.finish(too_wide).map_err(unwritten)?;
     let report = report.ok_or(Failure::Interrupted)?;
     let document = json::run(&scenario, &asked, &report);
     if input.json {
@@ -47,7 +59,17 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     let case = bundle::safe(&report.which.words());
     bundle.add(&format!("run-{case}.json"), document);
     bundle.add(&format!("case-{case}.toml"), write_instance(&report.instance, &scenario));
-    write(&bundle, &folder, input.quiet || input.json)?;
+    let quiet = input.quiet || input.json;
+    write(&bundle, &folder, quiet)?;
+    // the other table of an earlier run would be taken for one of this run
+    let wide = folder.join(format!("waves-{case}.csv"));
+    bundle::remove(if changes.is_some() { &wide } else { &table });
+    if let Some((stream, rows)) = changes {
+        stream.keep()?;
+        if !quiet {
+            say_aside(&format!("{}: all transitions, {rows}\n", table.display()));
+        }
+    }
     let broken = report.facts.iter().any(|fact| fact.breaks_rule);
     let undecided = !report.not_judged.is_empty() || report.judged == 0;
     Ok(ExitCode::from(u8::from(arguments.strict && (broken || undecided))))

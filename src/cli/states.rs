@@ -17,7 +17,7 @@ pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
     if control.cancelled() {
         return Err(Failure::Interrupted);
     }
-    let document = json::states(&scenario, &report);
+    let document = json::states(&scenario, &report, arguments.most_values);
     if input.json {
         say(&document)?;
     } else if !input.quiet {

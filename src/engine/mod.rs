@@ -20,7 +20,7 @@ use level::{Bit, Ternary};
 pub use observer::{Cancelled, Closing, Deaf, End, Finish, Hit, Observer, Opening, Site};
 use plan::Plan;
 use queue::{Sorted, Wheel};
-pub use trace::{Arrival, Change, Link, Lost, Trace, Window};
+pub use trace::{Arrival, Beyond, Change, Link, Lost, Trace, Window};
 
 use crate::control::Control;
 use crate::instance::Instance;

@@ -17,5 +17,5 @@ pub use asked::{Asked, Pattern, Question, RuleKey};
 pub use departure::{Against, Departed, Departure};
 pub use judge::{Answers, Judge, Match, Routine, Seen, Sink, matches, matches_any};
 pub use paths::{Leg, Path, RacePair};
-pub use race::race_pair;
+pub use race::{Races, race_pair};
 pub use words::{Fact, Kind, Measure, Reason, Subject};

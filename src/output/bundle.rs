@@ -83,13 +83,26 @@ impl Bundle {
             let number = if i == 0 { String::new() } else { format!("-{}", i + 1) };
             self.add(&format!("{stem}{number}.svg"), sheet.svg);
         }
-        let cells = picture.scenario.circuit.net_count() as u64 * run.trace.changes.len() as u64;
-        if cells > MOST_CELLS {
+        if let Some(cut) = run.trace.cut {
+            let until = cut.after.from_start().rounded();
+            let later = words::many(cut.transitions, "later transition");
+            self.notes.push(format!("{stem}.svg ends at {until}: {later} left out."));
+        }
+        if let Err(cells) = table_fits(picture.scenario, run) {
             self.notes.push(format!("{stem}.csv is left out: it would have {} cells.", words::count(cells)));
         } else {
             self.add(&format!("{stem}.csv"), waves::csv(picture.scenario, &run.trace));
         }
     }
+}
+
+/// Is a table with a column for every net small enough? Else the number of its cells; then [`waves::Changes`] is the table
+/// to write.
+pub fn table_fits(scenario: &Scenario, run: &RunReport) -> Result<(), u64> {
+    let later = run.trace.cut.map_or(0, |cut| cut.transitions);
+    let transitions = run.trace.changes.len() as u64 + later;
+    let cells = (scenario.circuit.net_count() as u64).saturating_mul(transitions);
+    if cells > MOST_CELLS || run.trace.cut.is_some() { Err(cells) } else { Ok(()) }
 }
 
 /// The files of one run: `waves-<case>.svg`, one a sheet, and `waves-<case>.csv`. `nets` chooses lanes.
@@ -327,7 +340,7 @@ pub fn remove(path: &Path) {
 }
 
 /// Where a file is written before it is moved into place.
-fn beside(path: &Path) -> PathBuf {
+pub(super) fn beside(path: &Path) -> PathBuf {
     let name = path.file_name().unwrap_or_default().to_string_lossy();
     path.with_file_name(format!(".{name}.part"))
 }

@@ -2,7 +2,7 @@
 //!
 //! Nothing about circuits is computed here. Every function takes results in numbers and exact times, and a
 //! [`Scenario`](crate::scenario::Scenario) for the names, and gives back text or bytes; the same input gives the same
-//! bytes on every machine. Only [`bundle::write`] touches a disk, and nothing prints.
+//! bytes on every machine. Only [`bundle`] and [`stream`] touch a disk, and nothing prints.
 
 mod assumptions;
 pub mod bundle;
@@ -23,6 +23,7 @@ mod limit_words;
 mod measure;
 mod races;
 mod search;
+pub mod stream;
 pub mod tables;
 pub mod text;
 pub mod waves;

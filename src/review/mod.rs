@@ -17,7 +17,7 @@ use std::collections::BTreeMap;
 pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, compare};
 pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
-pub use single::{run_one, states};
+pub use single::{MOST_KEPT, run_heard, run_one, states};
 pub use sweeping::{Saved, Stops, Sweeper, sweep};
 pub use verdict::{grouped, verdict, without_draws};
 pub use why::{Away, Cut, Kept, LOOKED_INTO, Needs, Pull, Pulls, Ranks, Untold, Why, causes, mann_whitney};

@@ -6,7 +6,7 @@ use super::single::run_one;
 use super::why::Why;
 use crate::control::Control;
 use crate::engine::{Program, Trace};
-use crate::findings::{Asked, Fact, Kind, RacePair, race_pair};
+use crate::findings::{Asked, Fact, Kind, RacePair, Races, race_pair};
 use crate::instance::Which;
 use crate::review::RunReport;
 use crate::scenario::Scenario;
@@ -96,5 +96,10 @@ impl RunReport {
     /// rest a review compares runs, and can say more.
     pub fn race(&self, scenario: &Scenario, asked: &Asked, fact: &Fact) -> Option<RacePair> {
         race_pair(scenario, asked, fact, &self.trace, None)
+    }
+
+    /// As [`RunReport::race`], for many facts of this run.
+    pub fn races<'a>(&'a self, scenario: &'a Scenario, asked: &'a Asked) -> Races<'a> {
+        Races::new(scenario, asked, &self.trace)
     }
 }

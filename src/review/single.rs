@@ -3,7 +3,7 @@
 use super::ReviewError;
 use super::report::{RunReport, StatesReport};
 use crate::control::Control;
-use crate::engine::{Program, Trace};
+use crate::engine::{Deaf, Observer, Program, Trace};
 use crate::findings::{Answers, Asked, Judge};
 use crate::flow::{Flow, flow};
 use crate::instance::{Instance, Which};
@@ -22,6 +22,9 @@ const ROW_VALUES: usize = 1 << 18;
 /// Stable states looked at to find the fewest state variables.
 const LOOKED_AT: usize = 1 << 16;
 
+/// Most entries of the trace of a run; see [`Trace::at_most`]. What comes later is judged and counted, and not kept.
+pub const MOST_KEPT: u64 = 1 << 20;
+
 /// Runs one case with all judges. `None`: the control cancelled it.
 pub fn run_one(
     scenario: &Scenario,
@@ -30,18 +33,31 @@ pub fn run_one(
     which: Which,
     control: &Control,
 ) -> Option<RunReport> {
+    run_heard(scenario, program, asked, which, control, Deaf).0
+}
+
+/// As [`run_one`], with one more observer, which is given back.
+pub fn run_heard<O: Observer<Tag = ()>>(
+    scenario: &Scenario,
+    program: &Program,
+    asked: &Asked,
+    which: Which,
+    control: &Control,
+    observer: O,
+) -> (Option<RunReport>, O) {
     let instance = Instance::of(scenario, &which);
-    let mut observers = (Trace::default(), Judge::new(scenario, asked, Answers::default()));
+    let judge = Judge::new(scenario, asked, Answers::default());
+    let mut observers = ((Trace::at_most(MOST_KEPT), judge), observer);
     if !program.machine().run(&instance, control, &mut observers) {
-        return None;
+        return (None, observers.1);
     }
-    let (trace, judge) = observers;
+    let ((trace, judge), observer) = observers;
     let Answers { mut facts, judged, mut not_judged, departures } = judge.sink;
     not_judged.sort_unstable();
     facts.sort_by_key(|fact| (!fact.breaks_rule, fact.subject.kind, std::cmp::Reverse(fact.measure), fact.subject));
     let allowed = asked.allowed.iter();
     let against = allowed.flat_map(|allowed| departures.iter().map(|it| it.against(allowed))).collect();
-    Some(RunReport { which, instance, trace, facts, judged, not_judged, against })
+    (Some(RunReport { which, instance, trace, facts, judged, not_judged, against }), observer)
 }
 
 /// All stable states of a circuit, and what may follow what. What a budget or limit cuts is said in the report.

@@ -25,22 +25,48 @@ pub fn race_pair(
     failing: &Trace,
     other: Option<&Trace>,
 ) -> Option<RacePair> {
-    let subject = &fact.subject;
-    let run = Causes::new(scenario, failing);
-    let other = other.map(|other| Causes::new(scenario, other));
-    match subject.kind {
-        Kind::Glitch | Kind::MinPulse => edges::pulse(&run, subject.net?, fact.place?),
-        Kind::Edges => edges::count(&run, &pattern(asked, subject)?, subject),
-        Kind::Never => edges::never(&run, &pattern(asked, subject)?, fact.place?),
-        Kind::Timing => edges::timing(&run, &pattern(asked, subject)?, fact),
-        Kind::SettleWithin => edges::settle(&run, subject.net?, fact.place?),
-        Kind::Swallowed => edges::swallowed(&run, subject.net?, subject.moment?),
-        Kind::Expect | Kind::NeverAtRest => {
-            decided::decided(&run, other.as_ref(), subject.moment?, Some(&nets_of(&pattern(asked, subject)?)))
+    Races::new(scenario, asked, failing).pair(fact, other)
+}
+
+/// A run whose findings are looked into one after the other: what is needed to walk its trace is made once.
+#[derive(Debug)]
+pub struct Races<'a> {
+    asked: &'a Asked,
+    run: Causes<'a>,
+}
+
+impl<'a> Races<'a> {
+    /// Makes a trace ready, in time linear in it.
+    pub fn new(scenario: &'a Scenario, asked: &'a Asked, trace: &'a Trace) -> Races<'a> {
+        Races { asked, run: Causes::new(scenario, trace) }
+    }
+
+    /// As [`race_pair`], for this run. `None` also where a bounded trace ends before the place of the fact.
+    pub fn pair(&self, fact: &Fact, other: Option<&Trace>) -> Option<RacePair> {
+        let other = other.filter(|other| other.cut.is_none());
+        if self.run.trace.cut.is_some() && !fact.place.is_some_and(|(_, to)| self.run.trace.reaches(to)) {
+            return None;
         }
-        Kind::CriticalRace | Kind::NotInReference => decided::decided(&run, other.as_ref(), subject.moment?, None),
-        Kind::NonCriticalRace => order::order(&run, &other?, subject.moment?),
-        Kind::Oscillation => round::once_round(&run, subject.moment?),
+        let other = other.map(|other| Causes::new(self.run.scenario, other));
+        pair(&self.run, self.asked, fact, other)
+    }
+}
+
+fn pair(run: &Causes<'_>, asked: &Asked, fact: &Fact, other: Option<Causes<'_>>) -> Option<RacePair> {
+    let subject = &fact.subject;
+    match subject.kind {
+        Kind::Glitch | Kind::MinPulse => edges::pulse(run, subject.net?, fact.place?),
+        Kind::Edges => edges::count(run, &pattern(asked, subject)?, subject),
+        Kind::Never => edges::never(run, &pattern(asked, subject)?, fact.place?),
+        Kind::Timing => edges::timing(run, &pattern(asked, subject)?, fact),
+        Kind::SettleWithin => edges::settle(run, subject.net?, fact.place?),
+        Kind::Swallowed => edges::swallowed(run, subject.net?, subject.moment?),
+        Kind::Expect | Kind::NeverAtRest => {
+            decided::decided(run, other.as_ref(), subject.moment?, Some(&nets_of(&pattern(asked, subject)?)))
+        }
+        Kind::CriticalRace | Kind::NotInReference => decided::decided(run, other.as_ref(), subject.moment?, None),
+        Kind::NonCriticalRace => order::order(run, &other?, subject.moment?),
+        Kind::Oscillation => round::once_round(run, subject.moment?),
         Kind::BeforeRest | Kind::NeverCame | Kind::Unsettled | Kind::Unresolved => None,
     }
 }

@@ -2,6 +2,7 @@
 
 use serde::{Serialize, Serializer};
 
+use super::listed::beginning;
 use super::parts::{Level, Lines, Object, OneLine, state, values};
 use crate::circuit::{Circuit, NetId};
 use crate::flow::{
@@ -37,6 +38,17 @@ struct Of<'a> {
     scenario: &'a Scenario,
     circuit: &'a Circuit,
     table: &'a FlowTable,
+    /// most values of nets that one list holds
+    most: usize,
+}
+
+/// Which lists of states are cut: these hold more values than one list may.
+#[derive(Clone, Copy, Debug, Default)]
+pub(super) struct Cuts {
+    pub table: bool,
+    pub start: bool,
+    pub transitions: bool,
+    pub hazards: bool,
 }
 
 impl<'a> Of<'a> {
@@ -54,7 +66,29 @@ impl<'a> Of<'a> {
     }
 
     fn states(self, numbers: &'a [StateNumber]) -> impl Serialize + 'a {
-        each(numbers, move |number| self.state(*number))
+        each(self.first(numbers, |_| 1), move |number| self.state(*number))
+    }
+
+    /// The first entries of a list of states: as many as it may hold; `states` tells how many states an entry has.
+    fn first<T>(self, list: &'a [T], states: impl Fn(&T) -> usize) -> &'a [T] {
+        beginning(list, self.most, |entry| states(entry) * self.circuit.net_count())
+    }
+
+    /// Is a list longer than it may be?
+    fn cuts<T>(self, list: &'a [T], states: impl Fn(&T) -> usize) -> bool {
+        self.first(list, states).len() < list.len()
+    }
+
+    /// The transitions that are listed: of steps, and of single inputs.
+    fn transitions(self) -> (&'a [Transition], &'a [Transition]) {
+        let outcomes = |to: &Reached| match to {
+            Reached::Exact { states, .. } => states.len(),
+            Reached::Bound { .. } => 1,
+        };
+        let values = |it: &Transition| (1 + outcomes(&it.to)) * self.circuit.net_count();
+        let steps = beginning(&self.table.steps, self.most, values);
+        let left = self.most.saturating_sub(steps.iter().map(values).sum());
+        (steps, if steps.len() < self.table.steps.len() { &[] } else { beginning(&self.table.single, left, values) })
     }
 
     /// A change of one input that steps do not make, or only perhaps.
@@ -107,20 +141,32 @@ impl<'a> Moves<'a> {
     }
 }
 
+/// Which lists are cut.
+pub(super) fn cuts(scenario: &Scenario, flow: &Flow, most: usize) -> Cuts {
+    let of = of(scenario, flow, most);
+    let (steps, single) = of.transitions();
+    Cuts {
+        table: of.cuts(&flow.table.states, |_| 1),
+        start: of.cuts(&flow.table.start, |_| 1),
+        transitions: steps.len() + single.len() < flow.table.steps.len() + flow.table.single.len(),
+        hazards: of.cuts(&flow.hazards, |_| 1),
+    }
+}
+
 /// The transitions: steps first.
-pub(super) fn transitions<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Serialize + 'a {
+pub(super) fn transitions<'a>(scenario: &'a Scenario, flow: &'a Flow, most: usize) -> impl Serialize + 'a {
     struct Both<'a>(Of<'a>);
     impl Serialize for Both<'_> {
         fn serialize<S: Serializer>(&self, to: S) -> Result<S::Ok, S::Error> {
-            let all = self.0.table.steps.iter().chain(&self.0.table.single);
-            to.collect_seq(all.map(|transition| Moves::of(self.0, transition)))
+            let (steps, single) = self.0.transitions();
+            to.collect_seq(steps.iter().chain(single).map(|transition| Moves::of(self.0, transition)))
         }
     }
-    Both(of(scenario, flow))
+    Both(of(scenario, flow, most))
 }
 
-fn of<'a>(scenario: &'a Scenario, flow: &'a Flow) -> Of<'a> {
-    Of { scenario, circuit: &scenario.circuit, table: &flow.table }
+fn of<'a>(scenario: &'a Scenario, flow: &'a Flow, most: usize) -> Of<'a> {
+    Of { scenario, circuit: &scenario.circuit, table: &flow.table, most }
 }
 
 /// A state of the table with its name in the other files.
@@ -133,12 +179,12 @@ struct Numbered<'a> {
 }
 
 /// The states of the table, in its order.
-pub(super) fn table<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Serialize + 'a {
+pub(super) fn table<'a>(scenario: &'a Scenario, flow: &'a Flow, most: usize) -> impl Serialize + 'a {
     struct All<'a>(Of<'a>);
     impl Serialize for All<'_> {
         fn serialize<S: Serializer>(&self, to: S) -> Result<S::Ok, S::Error> {
             let of = self.0;
-            to.collect_seq((0..).zip(&of.table.states).map(|(number, state)| Numbered {
+            to.collect_seq((0..).zip(of.first(&of.table.states, |_| 1)).map(|(number, state)| Numbered {
                 number: flow_words::state(number),
                 state: of.state(number),
                 reachable: state.reachable,
@@ -146,16 +192,16 @@ pub(super) fn table<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Serializ
             }))
         }
     }
-    All(of(scenario, flow))
+    All(of(scenario, flow, most))
 }
 
 /// The states in which a run may begin.
-pub(super) fn start<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Serialize + 'a {
-    of(scenario, flow).states(&flow.table.start)
+pub(super) fn start<'a>(scenario: &'a Scenario, flow: &'a Flow, most: usize) -> impl Serialize + 'a {
+    of(scenario, flow, most).states(&flow.table.start)
 }
 
 /// Which single-input changes the steps make.
-pub(super) fn coverage<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Serialize + 'a {
+pub(super) fn coverage<'a>(scenario: &'a Scenario, flow: &'a Flow, most: usize) -> impl Serialize + 'a {
     #[derive(Serialize)]
     struct Document<P, M> {
         all: u64,
@@ -164,19 +210,19 @@ pub(super) fn coverage<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Seria
         missing: M,
         truncated: bool,
     }
-    let of = of(scenario, flow);
+    let of = of(scenario, flow, most);
     let Coverage { all, exercised, perhaps, missing, truncated } = &flow.coverage;
     Document {
         all: *all,
         exercised: *exercised,
-        perhaps: each(perhaps, move |gap| of.gap(gap)),
-        missing: each(missing, move |gap| of.gap(gap)),
-        truncated: *truncated,
+        perhaps: each(of.first(perhaps, |_| 1), move |gap| of.gap(gap)),
+        missing: each(of.first(missing, |_| 1), move |gap| of.gap(gap)),
+        truncated: *truncated || of.cuts(perhaps, |_| 1) || of.cuts(missing, |_| 1),
     }
 }
 
 /// The circuit as an automaton.
-pub(super) fn automaton<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Serialize + 'a {
+pub(super) fn automaton<'a>(scenario: &'a Scenario, flow: &'a Flow, most: usize) -> impl Serialize + 'a {
     #[derive(Serialize)]
     struct Document<'a, U, D, E> {
         reading: &'static str,
@@ -187,7 +233,7 @@ pub(super) fn automaton<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Seri
         equal: E,
         truncated: bool,
     }
-    let of = of(scenario, flow);
+    let of = of(scenario, flow, most);
     let Automaton { reading, unreachable, dead_ends, equal, truncated } = &flow.automaton;
     Document {
         reading: match reading {
@@ -200,9 +246,14 @@ pub(super) fn automaton<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Seri
             Reading::Combinational | Reading::Moore => None,
         },
         unreachable: of.states(unreachable),
-        dead_ends: each(dead_ends, move |group: &Vec<StateNumber>| of.states(group)),
-        equal: each(equal, move |class: &Vec<StateNumber>| of.states(class)),
-        truncated: *truncated,
+        dead_ends: each(of.first(dead_ends, Vec::len), move |group: &Vec<StateNumber>| of.states(group)),
+        equal: each(of.first(equal, Vec::len), move |class: &Vec<StateNumber>| of.states(class)),
+        truncated: *truncated
+            || of.cuts(unreachable, |_| 1)
+            || [dead_ends, equal].into_iter().any(|list| {
+                let longest = list.first().is_some_and(|group| of.cuts(group, |_| 1));
+                longest || of.cuts(list, Vec::len)
+            }),
     }
 }
 
@@ -227,9 +278,9 @@ struct Term<'a> {
 }
 
 /// Hazards.
-pub(super) fn hazards<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Serialize + 'a {
-    let of = of(scenario, flow);
-    each(&flow.hazards, move |hazard: &'a Hazard| AbleTo {
+pub(super) fn hazards<'a>(scenario: &'a Scenario, flow: &'a Flow, most: usize) -> impl Serialize + 'a {
+    let of = of(scenario, flow, most);
+    each(of.first(&flow.hazards, |_| 1), move |hazard: &'a Hazard| AbleTo {
         net: words::net(scenario, hazard.net),
         shape: hazard.shape.word(),
         cause: hazard.cause.word(),
@@ -246,7 +297,7 @@ pub(super) fn hazards<'a>(scenario: &'a Scenario, flow: &'a Flow) -> impl Serial
 }
 
 /// Against the reference; `None` if there is none.
-pub(super) fn reference<'a>(scenario: &'a Scenario, flow: &'a Flow) -> Option<impl Serialize + 'a> {
+pub(super) fn reference<'a>(scenario: &'a Scenario, flow: &'a Flow, most: usize) -> Option<impl Serialize + 'a> {
     #[derive(Serialize)]
     struct Document<'a, B, C> {
         states: &'static str,
@@ -255,6 +306,7 @@ pub(super) fn reference<'a>(scenario: &'a Scenario, flow: &'a Flow) -> Option<im
         choices: C,
         compared: u64,
         not_compared: u64,
+        truncated: bool,
     }
     #[derive(Serialize)]
     struct NotThere<'a> {
@@ -271,7 +323,7 @@ pub(super) fn reference<'a>(scenario: &'a Scenario, flow: &'a Flow) -> Option<im
         set: Values<'a>,
         outcomes: Lines<Object<&'a str, Level>>,
     }
-    let of = of(scenario, flow);
+    let of = of(scenario, flow, most);
     let Compared { states, beyond, choices, compared, not_compared } = flow.compared.as_ref()?;
     let nets: Vec<NetId> = scenario.reference.iter().flat_map(|it| it.compare.iter().map(|pair| pair.0)).collect();
     let projections = move |list: &[Vec<bool>]| {
@@ -296,7 +348,7 @@ pub(super) fn reference<'a>(scenario: &'a Scenario, flow: &'a Flow) -> Option<im
             Contained::Not(values) => Some(of.some(values.iter().copied())),
             Contained::Proved | Contained::GaveUp => None,
         },
-        beyond: each(beyond, move |it: &Beyond| {
+        beyond: each(of.first(beyond, |it| 2 + it.allowed.len()), move |it: &Beyond| {
             let from = transition(it.transition);
             NotThere {
                 step: words::step(scenario, from.moment),
@@ -306,7 +358,7 @@ pub(super) fn reference<'a>(scenario: &'a Scenario, flow: &'a Flow) -> Option<im
                 allowed: projections(&it.allowed),
             }
         }),
-        choices: each(choices, move |it: &Choice| {
+        choices: each(of.first(choices, |it| 1 + it.outcomes.len()), move |it: &Choice| {
             let from = transition(it.transition);
             Offered {
                 step: words::step(scenario, from.moment),
@@ -317,5 +369,6 @@ pub(super) fn reference<'a>(scenario: &'a Scenario, flow: &'a Flow) -> Option<im
         }),
         compared: *compared,
         not_compared: *not_compared,
+        truncated: of.cuts(beyond, |it| 2 + it.allowed.len()) || of.cuts(choices, |it| 1 + it.outcomes.len()),
     })
 }

@@ -8,6 +8,7 @@
 mod check;
 mod flow;
 mod limit;
+mod listed;
 mod part;
 mod parts;
 mod prove;
@@ -21,6 +22,7 @@ mod why;
 
 pub use check::check;
 pub use limit::{limit, limit_map};
+pub use listed::MOST_VALUES;
 pub use part::part;
 pub use prove::prove;
 pub use review::review;

@@ -2,6 +2,7 @@
 
 use serde::Serialize;
 
+use super::listed::MOST_VALUES;
 use super::parts::Lines;
 use super::run::Run;
 use super::search::{Question, search};
@@ -48,7 +49,7 @@ pub fn review(scenario: &Scenario, review: &Review) -> String {
         reasons: &review.verdict.reasons,
         draws: review.sweep.samples,
         not_analysed: &scenario.not_analysed,
-        states: States::of(scenario, &review.states, None),
+        states: States::of(scenario, &review.states, None, MOST_VALUES),
         typical: review.typical.as_ref().map(|run| Run::of(scenario, asked, run, None)),
         sweep,
         search: search(scenario, review, &files),

@@ -4,6 +4,7 @@ use serde::ser::SerializeMap;
 use serde::{Serialize, Serializer};
 
 use super::flow;
+use super::listed::beginning;
 use super::parts::{Level, Lines, Object, OneLine, values};
 use crate::circuit::NetId;
 use crate::logic::{Bits, Value};
@@ -16,6 +17,7 @@ pub(super) struct States<'a> {
     scenario: &'a Scenario,
     report: &'a StatesReport,
     format: Option<u32>,
+    most: usize,
 }
 
 /// Number of input vectors by how many stable states they have.
@@ -33,8 +35,19 @@ struct Vector<'a> {
 }
 
 impl<'a> States<'a> {
-    pub fn of(scenario: &'a Scenario, report: &'a StatesReport, format: Option<u32>) -> States<'a> {
-        States { scenario, report, format }
+    pub fn of(scenario: &'a Scenario, report: &'a StatesReport, format: Option<u32>, most: usize) -> States<'a> {
+        States { scenario, report, format, most }
+    }
+
+    /// The rows that are listed.
+    fn first_rows(&self) -> &'a [Vec<Option<bool>>] {
+        beginning(&self.report.rows, self.most, Vec::len)
+    }
+
+    /// The input vectors that are listed.
+    fn first_inputs(&self) -> &'a [(Vec<bool>, Vec<Bits>)] {
+        let nets = self.scenario.circuit.net_count();
+        beginning(&self.report.inputs, self.most, |(inputs, states)| inputs.len() + states.len() * nets)
     }
 
     fn rows(&self) -> Lines<Object<&'a str, &'static str>> {
@@ -47,7 +60,7 @@ impl<'a> States<'a> {
             };
             Object(names.iter().copied().zip(row.iter().map(letter)).collect())
         };
-        Lines(self.report.rows.iter().map(row).collect())
+        Lines(self.first_rows().iter().map(row).collect())
     }
 
     fn vector(&self, (inputs, states): &'a (Vec<bool>, Vec<Bits>)) -> Vector<'a> {
@@ -77,26 +90,33 @@ impl Serialize for States<'_> {
         map.serialize_entry("state_variables_exact", &report.state_variables_exact)?;
         map.serialize_entry("vectors", &vectors)?;
         map.serialize_entry("rows", &self.rows())?;
-        map.serialize_entry("rows_truncated", &report.rows_truncated)?;
-        map.serialize_entry("inputs", &report.inputs.iter().map(|it| self.vector(it)).collect::<Vec<_>>())?;
-        map.serialize_entry("truncated", &report.inputs_truncated)?;
-        map.serialize_entry("table", &flow::table(scenario, flow))?;
-        map.serialize_entry("start", &flow::start(scenario, flow))?;
-        map.serialize_entry("transitions", &flow::transitions(scenario, flow))?;
-        let truncated = flow.table.states_truncated || flow.table.steps_truncated;
+        let (rows, inputs) = (self.first_rows().len(), self.first_inputs());
+        map.serialize_entry("rows_truncated", &(report.rows_truncated || rows < report.rows.len()))?;
+        map.serialize_entry("inputs", &inputs.iter().map(|it| self.vector(it)).collect::<Vec<_>>())?;
+        map.serialize_entry("truncated", &(report.inputs_truncated || inputs.len() < report.inputs.len()))?;
+        let (most, cuts) = (self.most, flow::cuts(scenario, flow, self.most));
+        map.serialize_entry("table", &flow::table(scenario, flow, most))?;
+        map.serialize_entry("table_count", &flow.table.states.len())?;
+        map.serialize_entry("table_truncated", &(flow.table.states_truncated || cuts.table))?;
+        map.serialize_entry("start", &flow::start(scenario, flow, most))?;
+        map.serialize_entry("start_truncated", &cuts.start)?;
+        map.serialize_entry("transitions", &flow::transitions(scenario, flow, most))?;
+        map.serialize_entry("transitions_count", &(flow.table.steps.len() + flow.table.single.len()))?;
+        let truncated = flow.table.states_truncated || flow.table.steps_truncated || cuts.transitions;
         map.serialize_entry("transitions_truncated", &truncated)?;
         map.serialize_entry("transition_notes", &flow.table.notes)?;
-        map.serialize_entry("coverage", &flow::coverage(scenario, flow))?;
-        map.serialize_entry("automaton", &flow::automaton(scenario, flow))?;
-        map.serialize_entry("hazards", &flow::hazards(scenario, flow))?;
-        map.serialize_entry("hazards_truncated", &flow.hazards_truncated)?;
+        map.serialize_entry("coverage", &flow::coverage(scenario, flow, most))?;
+        map.serialize_entry("automaton", &flow::automaton(scenario, flow, most))?;
+        map.serialize_entry("hazards", &flow::hazards(scenario, flow, most))?;
+        map.serialize_entry("hazards_truncated", &(flow.hazards_truncated || cuts.hazards))?;
         map.serialize_entry("hazards_not_judged", &flow.hazards_not_judged)?;
-        map.serialize_entry("reference", &flow::reference(scenario, flow))?;
+        map.serialize_entry("reference", &flow::reference(scenario, flow, most))?;
         map.end()
     }
 }
 
-/// The document of `states`.
-pub fn states(scenario: &Scenario, report: &StatesReport) -> String {
-    super::document(&States::of(scenario, report, Some(super::FORMAT)))
+/// The document of `states`. A list of states ends before it holds more than `most` values of nets
+/// ([`MOST_VALUES`](super::MOST_VALUES) by default), but not before its first entry; counts are exact all the same.
+pub fn states(scenario: &Scenario, report: &StatesReport, most: usize) -> String {
+    super::document(&States::of(scenario, report, Some(super::FORMAT), most))
 }

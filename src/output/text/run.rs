@@ -41,6 +41,11 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
         table(&mut paper, scenario, windows);
         super::more(&mut paper, windows.len().saturating_sub(WINDOWS), "the JSON, with --json");
     }
+    if let Some(cut) = report.trace.cut {
+        let until = cut.after.from_start().rounded();
+        let (moves, later) = (words::many(cut.transitions, "transition"), words::many(cut.windows, "window"));
+        paper.say(2, Tone::Unsure, &format!("Kept until {until}; {moves} and {later} came later and are judged, too."));
+    }
     if let Some(step) = words::step(scenario, report.trace.never_came) {
         paper.say(2, Tone::Bad, &format!("The run ends before step {step}: what it waits for never came."));
     }

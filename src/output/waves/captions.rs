@@ -45,10 +45,15 @@ pub(super) fn notes(picture: &Picture<'_>, seen: &Seen<'_>) -> Vec<String> {
         let (first, last) = (words::net(scenario, *first), words::net(scenario, *last));
         notes.push(format!("Sheet {} of {many}: {first} to {last}.", number + 1));
     }
-    if let Some((from, to)) = picture.range {
+    if let Some((from, to)) = picture.part() {
         let time = |at: Time| at.from_start().decimal(scenario.unit);
         let (from, to, all) = (time(from), time(to), time(picture.end()));
         notes.push(format!("A part of the run: from {from} to {to} of {all} {}.", scenario.unit));
+    }
+    let later: u64 = picture.runs().filter_map(|run| run.trace.cut).map(|cut| cut.transitions).sum();
+    if later > 0 {
+        let later = words::many(later, "transition");
+        notes.push(format!("{later} came after what was kept for pictures; the table of changes of `run` has them."));
     }
     if !seen.left_out.is_empty() {
         let names = words::some_names(&words::nets(scenario, seen.left_out), NAMED);

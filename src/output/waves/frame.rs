@@ -95,7 +95,7 @@ impl Frame {
     pub fn new(picture: &Picture<'_>, nets: &[NetId], left_out: &[NetId], sheet: (usize, usize)) -> Frame {
         let scenario = picture.scenario;
         let front = picture.front();
-        let range = picture.range.unwrap_or_else(|| (Time::ZERO, picture.end()));
+        let range = picture.part().unwrap_or_else(|| (Time::ZERO, picture.end()));
         let range = (range.0, range.1.max(range.0 + Span::TICK));
         let shown = |from: Time, to: Time| from <= range.1 && range.0 <= to;
         let mut steps: Vec<Step> = front.map_or_else(Vec::new, |run| marks::steps(scenario, run));

@@ -6,6 +6,7 @@
 mod arrows;
 mod axis;
 mod captions;
+mod changes;
 mod choose;
 mod csv;
 mod draw;
@@ -21,6 +22,7 @@ use crate::review::RunReport;
 use crate::scenario::Scenario;
 use crate::time::Time;
 
+pub use self::changes::{Changes, Overflow};
 pub use self::csv::csv;
 
 /// Most lanes of one sheet.
@@ -90,6 +92,18 @@ impl<'a> Picture<'a> {
     /// The run at the front.
     fn front(&self) -> Option<&'a RunReport> {
         self.runs().next()
+    }
+
+    /// From when to when it is drawn; `None` for the whole of the run. A run of which not everything was kept is drawn as
+    /// far as it was.
+    fn part(&self) -> Option<(Time, Time)> {
+        let Some(after) = self.runs().filter_map(|run| run.trace.cut).map(|cut| cut.after).min() else {
+            return self.range;
+        };
+        match self.range {
+            Some((from, to)) if from < after => Some((from, to.min(after))),
+            _ => Some((Time::ZERO, after)),
+        }
     }
 
     /// The last instant of all runs, and at least one unit.
