@@ -1,11 +1,12 @@
 //! The numbers that a plan takes from the streams of its draws: of each stream only the blocks that hold one.
 //!
 //! The streams are those of [`ChaCha8Rng`], which always makes four blocks of a stream in a row. A small case needs one
-//! block of each of many streams, so here four blocks of any streams are made at once, and where a draw needs less than
-//! four, those of the draws that follow are made with them. Source of the cipher: D. J. Bernstein, "ChaCha, a variant of
+//! block of each of many streams, so here four blocks of any streams are made at once: where a draw needs less than four,
+//! those of the draws that follow are made with them. Where it needs more, the crate makes them. Source of the cipher: D. J. Bernstein, "ChaCha, a variant of
 //! Salsa20" (2008), with a counter of 64 bits and a stream number of 64 bits, as in crate `rand_chacha`; the tests hold
 //! the two against each other.
 
+use rand::Rng;
 use rand_chacha::ChaCha8Rng;
 
 /// Numbers (u64) in a block.
@@ -18,6 +19,7 @@ type Lanes = [u32; LANES];
 /// The numbers of one plan, draw after draw.
 #[derive(Clone, Debug)]
 pub(super) struct Stream {
+    rng: ChaCha8Rng,
     key: [u32; 8],
     /// Draw `n` takes its numbers from stream 2n, or 2n + 1.
     odd: u64,
@@ -42,6 +44,7 @@ impl Stream {
         let places = places.map(|place| block(place) * BLOCK as u32 + (place % BLOCK) as u32).collect();
         let at_once = if blocks.len() < LANES { LANES } else { 1 };
         Stream {
+            rng: rng.clone(),
             key: std::array::from_fn(|i| u32::from_le_bytes(std::array::from_fn(|byte| seed[4 * i + byte]))),
             odd: u64::from(odd),
             places,
@@ -71,6 +74,18 @@ impl Stream {
     fn make(&mut self, draw: u64) {
         self.first = Some(draw);
         let count = self.blocks.len();
+        if count >= LANES {
+            self.rng.set_stream(draw.wrapping_mul(2) | self.odd);
+            let mut next = None;
+            for (block, made) in self.blocks.iter().zip(self.made.chunks_mut(BLOCK as usize)) {
+                if next != Some(*block) {
+                    self.rng.set_word_pos(2 * u128::from(BLOCK) * u128::from(*block));
+                }
+                made.fill_with(|| self.rng.next_u64());
+                next = Some(block + 1);
+            }
+            return;
+        }
         let all = self.at_once as usize * count;
         for from in (0..all).step_by(LANES) {
             // past the last one the last is made again
@@ -127,7 +142,7 @@ fn quarter(all: &mut [Lanes; 16], a: usize, b: usize, c: usize, d: usize) {
 
 #[cfg(test)]
 mod tests {
-    use rand::{Rng, SeedableRng};
+    use rand::SeedableRng;
 
     use super::*;
 

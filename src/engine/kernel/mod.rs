@@ -285,6 +285,7 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
                 }
             }
             if outside == at {
+                self.queue.pass(at);
                 timed = self.outside(plan, instance, at, quiet_since, &mut open, observer);
                 batches += 1;
             } else {

@@ -42,6 +42,8 @@ pub trait Queue {
     fn is_empty(&self) -> bool;
     /// When the earliest entry is due; [`NEVER`] if none is. If that is later than `until`, the answer may be [`NEVER`].
     fn top(&mut self, until: u64, nodes: &impl Nodes) -> u64;
+    /// Nothing is due before `at`, and nothing will be.
+    fn pass(&mut self, at: u64);
     /// Takes out an entry of the earliest instant. To be called after [`Queue::top`] has told of one, with nothing put in
     /// or taken out since, but entries of that instant by this call. If the queue is [`Queue::LAZY`], the node's `due` is
     /// to be [`NEVER`] at once.
@@ -108,6 +110,7 @@ mod tests {
                         let top = queue.top(until, &shadow);
                         prop_assert!(top == first || top == NEVER && first > until);
                         now = until.min(first);
+                        queue.pass(now);
                     }
                     _ => {
                         let Some(&(first, _)) = shadow.set.first() else { continue };

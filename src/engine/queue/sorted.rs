@@ -90,6 +90,9 @@ impl Queue for Sorted {
     }
 
     #[inline(always)]
+    fn pass(&mut self, _at: u64) {}
+
+    #[inline(always)]
     fn pop(&mut self) -> u32 {
         let node = self.near[self.end % PLACES].node;
         self.end -= 1;

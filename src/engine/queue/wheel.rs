@@ -87,13 +87,6 @@ impl Wheel {
         Some(after + ((bucket as u64).wrapping_sub(after) & self.mask()))
     }
 
-    /// Nothing is due up to `until`: its tick is the one under way.
-    fn skip(&mut self, until: u64) {
-        if until != NEVER {
-            self.tick = self.tick.max(until >> self.shift);
-        }
-    }
-
     /// Goes on to the next tick that has something due, if that is not after `until`. Returns whether it did.
     fn advance(&mut self, until: u64, nodes: &impl Nodes) -> bool {
         // what is stale may be due at a time that was skipped
@@ -105,7 +98,6 @@ impl Wheel {
         let near = self.next_tick();
         let far = self.far.peek().map(|entry| entry.0.0 >> self.shift);
         let Some(tick) = near.into_iter().chain(far).min().filter(|tick| *tick <= until >> self.shift) else {
-            self.skip(until);
             return false;
         };
         self.tick = tick;
@@ -197,14 +189,15 @@ impl Queue for Wheel {
                 }
                 self.current.pop();
             }
-            if self.live == 0 {
-                self.skip(until);
-                return NEVER;
-            }
-            if !self.advance(until, nodes) {
+            if self.live == 0 || !self.advance(until, nodes) {
                 return NEVER;
             }
         }
+    }
+
+    #[inline]
+    fn pass(&mut self, at: u64) {
+        self.tick = self.tick.max(at >> self.shift);
     }
 
     #[inline]
