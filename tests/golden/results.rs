@@ -90,6 +90,7 @@ pub fn finding(kind: Kind, net: Option<NetId>, moment: u32, count: u64) -> Findi
         sample: Some(17),
         worst_sample: Some(8123),
         case: None,
+        rare: false,
     }
 }
 
@@ -239,6 +240,7 @@ pub fn review(scenario: &Scenario) -> Review {
         ],
         why: why(scenario, sweep.findings.len()),
         search: None,
+        proof: None,
         sweep,
         asked,
         verdict: Verdict {
