@@ -8,12 +8,7 @@ use crate::time::Span;
 
 /// A case with the delays of groups put such that a draw could give them. What the trace of the system does not use is
 /// free; `None` if the delays that it does use exclude each other in some group.
-pub(super) fn grouped(
-    scenario: &Scenario,
-    plant: &Plant,
-    system: &System,
-    mut instance: Instance,
-) -> Option<Instance> {
+pub(super) fn grouped(scenario: &Scenario, plant: &Plant, system: &System, mut instance: Instance) -> Option<Instance> {
     let delays = &scenario.delays;
     let mut used = vec![[false; 2]; delays.gate.len()];
     for unknown in &system.unknowns {

@@ -12,27 +12,32 @@ const NAMED: usize = 3;
 
 /// The proof beside the sweep.
 pub(super) fn challenge(paper: &mut Paper, scenario: &Scenario, review: &Review) {
-    paper.gap();
     let Some(proof) = &review.proof else {
-        let text = "Proof over every delay in the ranges: none was asked for, so nothing is proved.";
+        let text = "Proof over all delays: none was asked for, so nothing is proved.";
         return paper.say(0, Tone::Unsure, text);
     };
-    let count = |call: Call| words::count(proof.count(call));
+    let counted = |call: Call, word: &str| {
+        let count = words::count(proof.count(call));
+        match reason(proof, call) {
+            Some((reason, 0)) => format!("{count} {word} ({reason})"),
+            Some((reason, _)) => format!("{count} {word} (mostly: {reason})"),
+            None => format!("{count} {word}"),
+        }
+    };
     let conditions = match scenario.conditions.is_empty() {
         true => "",
         false => " It speaks of nominal delays, not of conditions.",
     };
     let text = format!(
-        "Proof over every delay in the ranges: of {} {} proved, {} refuted, {} undecided, {} not covered \
-         ({} zones).{conditions}",
+        "Proof over all delays: of {} {} proved, {} refuted, {}, {}.{conditions}",
         words::many(proof.claims.len() as u64, "claim"),
-        count(Call::Proved),
-        count(Call::Refuted),
-        count(Call::Undecided),
-        count(Call::NotCovered),
-        words::count(proof.zones),
+        words::count(proof.count(Call::Proved)),
+        words::count(proof.count(Call::Refuted)),
+        counted(Call::Undecided, "undecided"),
+        counted(Call::NotCovered, "not covered"),
     );
-    paper.say(0, Tone::Plain, &text);
+    let open = proof.count(Call::Undecided) + proof.count(Call::NotCovered) > 0;
+    paper.say(0, if open { Tone::Unsure } else { Tone::Plain }, &text);
     let about = |claim: &Claim| words::question(scenario, &review.asked.questions[claim.question as usize]);
     let rare: Vec<String> = review
         .sweep
@@ -44,12 +49,6 @@ pub(super) fn challenge(paper: &mut Paper, scenario: &Scenario, review: &Review)
     named(paper, Tone::Bad, "Rare, refuted and met by nothing else", &rare);
     let ties = proof.claims.iter().filter(|claim| claim.call == Call::Refuted && claim.but_for_ties);
     named(paper, Tone::Plain, "Refuted only by exactly equal times", &ties.map(about).collect::<Vec<_>>());
-    for (call, title) in [(Call::Undecided, "Undecided"), (Call::NotCovered, "Not covered")] {
-        if let Some((reason, more)) = reason(proof, call) {
-            let more = if more > 0 { format!(", and {}", words::many(more, "other reason")) } else { String::new() };
-            paper.hang(2, 4, Tone::Unsure, &format!("{title}: {reason}{more}."));
-        }
-    }
 }
 
 /// A few of a list, and how many more.

@@ -20,7 +20,7 @@ const TOLD: usize = 3;
 const LINES: usize = 2;
 /// With more findings that break a rule than this, paths of others are told in the JSON only.
 const FEW: usize = 2;
-/// Most findings listed that break no rule; one less where more than a few break one.
+/// Most findings listed that break no rule; two less where more than a few break one.
 const LISTED: usize = 3;
 
 /// What a finding is about: `glitch static-0, open_lower, step together`.
@@ -264,7 +264,7 @@ pub(super) fn findings(
     if !listed.is_empty() {
         paper.heading("Also seen, breaks no rule");
         // where much is broken less is said of the rest
-        let most = if broken.len() > FEW { LISTED - 1 } else { LISTED };
+        let most = if broken.len() > FEW { LISTED - 2 } else { LISTED };
         for (i, group) in listed.iter().take(most).enumerate() {
             paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures(scenario)));
             if i == 0 && broken.len() <= FEW {
