@@ -82,7 +82,10 @@ fn a_rare_failure_is_found_by_the_proof_alone() {
     );
     assert!(lines.contains("low5↑ + low6↑ + 6.5 ns (18.5 … 30.5) must not exceed high1↑ +"), "its race: {page}");
     assert!(page.lines().all(|line| line.chars().count() <= 100), "{page}");
-    assert!(!page.contains("Smallest margins"), "a rule that the proof refutes has no margin without a failure: {page}");
+    assert!(
+        !page.contains("Smallest margins"),
+        "a rule that the proof refutes has no margin without a failure: {page}"
+    );
 
     // the search meets it: then it is rare no more, and told once
     let searched = read(&chains("").replace("search = 0", "search = 1000"));

@@ -65,13 +65,7 @@ pub(super) fn comes_to_rest_within(
 }
 
 /// Real cycles, one for each number of steps taken, with or without things that happen together; and whether they are all.
-fn cycles(
-    plant: &Plant,
-    starts: &[Vec<bool>],
-    joint: bool,
-    budget: &Budget,
-    zones: &mut u64,
-) -> (Vec<Cycle>, Ended) {
+fn cycles(plant: &Plant, starts: &[Vec<bool>], joint: bool, budget: &Budget, zones: &mut u64) -> (Vec<Cycle>, Ended) {
     let mode = Mode { joint, edges: true, ..Mode::default() };
     let found = explore(plant, starts, &Nothing, mode, budget);
     *zones += found.zones;

@@ -51,7 +51,8 @@ pub fn reviewed(scenario: &Scenario, asked: &Asked, sweep: &SweepReport, proof: 
     let said = verdict(scenario, sweep);
     // under other conditions delays have other ranges
     let all = proof.filter(|proof| {
-        let proved = |question: u32| proof.claims.iter().any(|it| it.question == question && it.call == Claimed::Proved);
+        let proved =
+            |question: u32| proof.claims.iter().any(|it| it.question == question && it.call == Claimed::Proved);
         sweep.conditions.is_empty()
             && !asked.questions.is_empty()
             && (0..asked.questions.len() as u32).all(proved)
