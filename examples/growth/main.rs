@@ -23,7 +23,10 @@ use std::path::Path;
 
 type Measured = Result<(), Box<dyn Error>>;
 
-const PICTURES: [(&str, fn(&Path, bool) -> Measured); 4] =
+/// Measures what a picture shows, or reads it where only drawing is asked, and draws it.
+type Draws = fn(&Path, bool) -> Measured;
+
+const PICTURES: [(&str, Draws); 4] =
     [("states", states::growth), ("gates", gates::growth), ("samples", samples::growth), ("trace", trace::growth)];
 
 fn main() -> Measured {

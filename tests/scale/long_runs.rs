@@ -6,7 +6,7 @@ use std::process::{Command, Output};
 
 use serde_json::Value;
 
-/// Rings that never come back to a state, tied together; they stop by the limit of transitions.
+/// Rings tied together. A step is still to come, so that no oscillation ends the run: the limit of transitions does.
 fn rings(count: usize, transitions: u64) -> String {
     let mut text =
         "title = \"rings\"\noutputs = [\"x0\"]\n[inputs]\ngo = 0\n[delays]\nrise = [6, 9, 14]\nfall = [5, 8, 12]\n\
@@ -19,7 +19,7 @@ fn rings(count: usize, transitions: u64) -> String {
              [\"b{ring}\"] }}\nx{ring} = {{ xor = [\"c{ring}\", \"{before}\"] }}\n"
         );
     }
-    text + &format!("[limits]\ntransitions = {transitions}\n[[steps]]\nat = 10\nset = {{ go = 1 }}\n")
+    text + &format!("[limits]\ntransitions = {transitions}\n[[steps]]\nat = 10\nset = {{ go = 1 }}\n[[steps]]\nat = 1000000000\nset = {{ go = 0 }}\n")
 }
 
 fn stillgate(folder: &Path, arguments: &[&str]) -> Output {
