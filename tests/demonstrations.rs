@@ -16,15 +16,15 @@ fn every_demonstration_shows_what_it_says() {
         ("interlock", Call::Broken, Some(Kind::Glitch)),
         ("interlock-walk", Call::Broken, Some(Kind::Glitch)),
         ("selector", Call::Broken, Some(Kind::Glitch)),
-        ("selector-cured", Call::NoFailureFound, None),
+        ("selector-cured", Call::Proved, None),
         ("divider", Call::NoFailureFound, None),
         ("horn", Call::NoFailureFound, Some(Kind::Oscillation)),
         ("bell", Call::Broken, Some(Kind::Timing)),
-        ("handshake", Call::NoFailureFound, None),
+        ("handshake", Call::Proved, None),
         ("sequencer", Call::Broken, Some(Kind::Expect)),
         ("permit", Call::Broken, Some(Kind::NotInReference)),
         ("stepper", Call::Broken, Some(Kind::Expect)),
-        ("power-up", Call::NoFailureFound, Some(Kind::CriticalRace)),
+        ("power-up", Call::Proved, Some(Kind::CriticalRace)),
         ("contactors", Call::Broken, Some(Kind::Never)),
         ("clock-switch", Call::Broken, Some(Kind::MinPulse)),
         ("pulse-train", Call::NoFailureFound, Some(Kind::Swallowed)),
@@ -101,7 +101,7 @@ fn the_permit_that_is_forgotten_is_found_by_the_reference_alone_and_replays() {
     scenario.plan.samples = 2000;
     let program = Program::new(&scenario, &control).unwrap();
     let review = review::review(&scenario, &program, 1, &control).unwrap();
-    assert_eq!(review.verdict.call, Call::NoFailureFound, "{:?}", review.verdict.reasons);
+    assert_eq!(review.verdict.call, Call::Proved, "{:?}", review.verdict.reasons);
     assert_eq!(review.states.flow.compared.unwrap().beyond, []);
 }
 

@@ -239,6 +239,7 @@ fn the_files_of_a_review() {
         "causes.csv",
         "case-never-open-upper-1-open-lower-1-together.toml",
         "case-critical-race-together.toml",
+        "refuted-1.toml",
         "settling.svg",
         "settling.csv",
         "outcomes.csv",

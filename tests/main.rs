@@ -8,6 +8,7 @@ mod bounded_agrees;
 mod bounded_cycles;
 mod bounded_simulated;
 mod causes;
+mod challenge;
 mod commands;
 mod conditions;
 mod coverage;

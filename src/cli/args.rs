@@ -6,6 +6,7 @@ use clap::builder::PossibleValuesParser;
 use clap::{Args, Parser, Subcommand};
 
 use crate::output::json;
+use crate::review::PROOF_ZONES;
 use crate::scenario::Plan;
 use crate::sweep::Until;
 
@@ -156,6 +157,10 @@ pub struct Reviewing {
     /// scenario's; 0: no search. What it meets is no bound
     #[arg(long, value_name = "N", value_parser = searched)]
     pub search: Option<u64>,
+    /// Zones that the proof over all delays may keep in all explorations, a tenth of them in one; 0: no proof. `prove` has
+    /// larger budgets
+    #[arg(long, value_name = "N", default_value_t = PROOF_ZONES, value_parser = clap::value_parser!(u64).range(..=1 << 32))]
+    pub proof_zones: u64,
 }
 
 /// 0, or enough runs to be of use.

@@ -274,3 +274,16 @@ pub fn finish(bar: Option<ProgressBar>) {
         bar.finish_and_clear();
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_contradiction_of_views_ends_with_code_3_and_asks_for_a_report() {
+        let failure = Failure::from(ReviewError::Contradiction("settles where the proof says nothing can".into()));
+        assert_eq!(failure.code(), 3);
+        let text = failure.to_string();
+        assert!(text.contains("the proof says") && text.contains("please report"), "{text}");
+    }
+}

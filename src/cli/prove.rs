@@ -6,7 +6,6 @@ use std::time::Duration;
 use super::args::Proving;
 use super::common::{Failure, INTERRUPTED, called, control, finish, folder, load, page, program, say, write};
 use crate::findings::Asked;
-use crate::output::instance::write_instance;
 use crate::output::text::Page;
 use crate::output::{bundle, json, text};
 use crate::proof::{self, Call, Spend};
@@ -21,6 +20,7 @@ pub fn run(arguments: &Proving) -> Result<ExitCode, Failure> {
     let time = arguments.seconds.map(Duration::from_secs);
     let spend = Spend {
         zones: arguments.zones,
+        total: None,
         bytes: arguments.memory << 20,
         time,
         margins: arguments.margin,
@@ -39,11 +39,7 @@ pub fn run(arguments: &Proving) -> Result<ExitCode, Failure> {
     }
     let mut bundle = bundle::Bundle::default();
     bundle.add("proof.json", document);
-    for (claim, file) in proof.claims.iter().zip(&files) {
-        if let (Some(witness), Some(file)) = (&claim.witness, file) {
-            bundle.add(file, write_instance(witness, &scenario));
-        }
-    }
+    bundle.add_witnesses(&scenario, &proof);
     write(&bundle, &folder, input.quiet || input.json)?;
     if control.cancelled() {
         return Ok(ExitCode::from(INTERRUPTED));

@@ -12,14 +12,15 @@ use crate::output::{bundle, json, text};
 use crate::review;
 
 pub fn run(arguments: &Reviewing) -> Result<ExitCode, Failure> {
-    let Reviewing { sweeping: arguments, search } = arguments;
+    let Reviewing { sweeping: arguments, search, proof_zones } = arguments;
     let input = &arguments.input;
     let mut scenario = with_draws(load(input)?, &arguments.draws);
     scenario.plan.search = search.unwrap_or(scenario.plan.search);
     let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(input.quiet, "review");
     let program = program(&scenario, &control)?;
-    let review = review::review(&scenario, &program, arguments.threads.map_or(0, usize::from), &control)?;
+    let threads = arguments.threads.map_or(0, usize::from);
+    let review = review::review_proving(&scenario, &program, *proof_zones, threads, &control)?;
     finish(bar);
     if control.cancelled() && review.sweep.samples == 0 {
         return Err(Failure::Interrupted);

@@ -80,6 +80,76 @@ impl Together {
     }
 }
 
+impl Together {
+    /// Delays of a group of which some are given: the others such that all of them can come of one draw. `None`: the given
+    /// ones exclude each other, whatever is drawn. `delays` has a range each, and the delay where it is given.
+    ///
+    /// Groups that track with a correlation below 1 exclude nothing. With 1 all delays lie at the same share of their
+    /// draws. Where a common factor scales, the given delays must leave one that each of them is within its mismatch of.
+    pub fn complete(self, marginal: Marginal, delays: &[(DelayRange, Option<Span>)]) -> Option<Vec<Span>> {
+        // corners are draws of the ends alone: what the range allows between them lies as in a uniform draw
+        let marginal = if marginal == Marginal::Corners { Marginal::Uniform } else { marginal };
+        let (mut first, mut last) = match self {
+            Together::Tracking(_) => (0, u64::MAX),
+            Together::Scale { least, greatest, .. } => (least.0, greatest.0),
+        };
+        for (range, given) in delays {
+            let Some(given) = given else { continue };
+            let [low, high] = self.ends(marginal, *range);
+            first = first_where(first, last, |common| high(common) >= *given)?;
+            // the first that is too much, less one
+            match first_where(first, last, |common| low(common) > *given) {
+                Some(beyond) if beyond == first => return None,
+                Some(beyond) => last = beyond - 1,
+                None => {}
+            }
+        }
+        let common = match self {
+            Together::Tracking(_) => first + (last - first) / 2,
+            Together::Scale { .. } => Billionths::ONE.0.clamp(first, last),
+        };
+        let other = |range: DelayRange| match self {
+            Together::Tracking(rho) if rho < Billionths::ONE => range.typ,
+            Together::Tracking(_) => marginal.quantile(range, common),
+            Together::Scale { .. } => scaled(range, common, Billionths::ONE.0),
+        };
+        Some(delays.iter().map(|(range, given)| given.unwrap_or_else(|| other(*range))).collect())
+    }
+
+    /// The least and greatest delay of a range by what the group has in common; both grow with it.
+    fn ends(self, marginal: Marginal, range: DelayRange) -> [Box<dyn Fn(u64) -> Span>; 2] {
+        match self {
+            Together::Tracking(rho) if rho < Billionths::ONE => {
+                [Box::new(move |_| range.min), Box::new(move |_| range.max)]
+            }
+            Together::Tracking(_) => {
+                [Box::new(move |u| marginal.quantile(range, u)), Box::new(move |u| marginal.quantile(range, u))]
+            }
+            Together::Scale { mismatch, .. } => {
+                let one = Billionths::ONE.0;
+                let mismatch = mismatch.0.min(one);
+                [
+                    Box::new(move |scale| scaled(range, scale, one - mismatch)),
+                    Box::new(move |scale| scaled(range, scale, one + mismatch)),
+                ]
+            }
+        }
+    }
+}
+
+/// The first number of `first ..= last` of which something holds that then holds of all that follow.
+fn first_where(first: u64, last: u64, holds: impl Fn(u64) -> bool) -> Option<u64> {
+    if !holds(last) {
+        return None;
+    }
+    let (mut low, mut high) = (first, last);
+    while low < high {
+        let middle = low + (high - low) / 2;
+        if holds(middle) { high = middle } else { low = middle + 1 }
+    }
+    Some(low)
+}
+
 fn between(min: u64, typ: u64, max: u64) -> DelayRange {
     DelayRange { min: Span::from_fs(min), typ: Span::from_fs(typ), max: Span::from_fs(max) }
 }
@@ -162,5 +232,55 @@ mod tests {
         assert_eq!(huge.draw(Marginal::Uniform, long, 5, u64::MAX), long.max, "cut, and no overflow");
         let tiny = Together::Scale { least: Billionths(0), greatest: Billionths(0), mismatch: Billionths(0) };
         assert_eq!(tiny.draw(Marginal::Uniform, wide, 5, 5), wide.min);
+    }
+
+    #[test]
+    fn given_delays_of_a_group_leave_a_draw_of_all_or_none() {
+        let fs = Span::from_fs;
+        let wide = between(1, 4_000, 1 << 40);
+        let group = |least: f64, greatest: f64, mismatch: f64| Together::Scale {
+            least: Billionths::nearest(least),
+            greatest: Billionths::nearest(greatest),
+            mismatch: Billionths::nearest(mismatch),
+        };
+        let two = |a: u64, b: Option<u64>| [(wide, Some(fs(a))), (wide, b.map(fs))];
+        let of = |group: Together, a: u64, b: Option<u64>| group.complete(Marginal::Uniform, &two(a, b));
+        // 4000 times 0.5 to 1.5, each within a tenth: 3600 and 4400 are a fifth apart about 1, 3599 and 4401 more
+        let tenth = group(0.5, 1.5, 0.1);
+        assert_eq!(of(tenth, 3_600, Some(4_400)), Some(vec![fs(3_600), fs(4_400)]));
+        assert_eq!(of(tenth, 3_500, Some(4_400)), None);
+        assert_eq!(of(tenth, 1_800, Some(2_200)), Some(vec![fs(1_800), fs(2_200)]), "both ends at a factor of 0.5");
+        assert_eq!(of(tenth, 1_799, None), None, "below what any factor gives");
+        assert_eq!(of(tenth, 6_601, None), None, "above");
+        // the other follows, as near to typical as it may
+        assert_eq!(of(tenth, 4_000, None), Some(vec![fs(4_000), fs(4_000)]));
+        let low = of(tenth, 2_200, None).unwrap()[1];
+        assert!(low > fs(2_200) && low <= fs(2_445), "{low:?}");
+        // what is clipped by its range is reached by every larger factor
+        let clipped = between(3_000, 4_000, 5_000);
+        let both = [(clipped, Some(fs(5_000))), (wide, Some(fs(6_600)))];
+        assert!(tenth.complete(Marginal::Uniform, &both).is_some());
+
+        let whole = Together::Tracking(Billionths::ONE);
+        for marginal in [Marginal::Uniform, Marginal::Triangular, Marginal::Normal, Marginal::Corners] {
+            let narrow = between(1_000, 4_000, 6_000);
+            let given = [(narrow, Some(fs(1_500))), (between(100, 400, 600), None)];
+            let all = whole.complete(marginal, &given).unwrap();
+            assert!(all[0] == fs(1_500) && all[1] < fs(400), "{marginal:?} {all:?}");
+            let apart = [(narrow, Some(fs(1_000))), (narrow, Some(fs(6_000)))];
+            assert_eq!(whole.complete(marginal, &apart), None, "{marginal:?}");
+            let half = Together::Tracking(Billionths::nearest(0.5));
+            assert_eq!(half.complete(marginal, &apart), Some(vec![fs(1_000), fs(6_000)]), "{marginal:?}");
+        }
+        // every draw of a group fits it
+        for own in [0, 1 << 40, 1 << 62, u64::MAX] {
+            for common in [3, 1 << 41, 1 << 63, u64::MAX - 9] {
+                for group in [tenth, whole, group(0.0, 0.2, 0.9)] {
+                    let draw = |own| group.draw(Marginal::Triangular, range(), own, common);
+                    let given = [(range(), Some(draw(own))), (range(), Some(draw(own / 3)))];
+                    assert!(group.complete(Marginal::Triangular, &given).is_some(), "{group:?} {own} {common}");
+                }
+            }
+        }
     }
 }

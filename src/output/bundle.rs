@@ -12,6 +12,7 @@ use crate::output::instance::write_instance;
 use crate::output::search::case_files;
 use crate::output::waves::{self, Nets, Picture};
 use crate::output::{causes, charts, convergence, flow_tables, json, tables, words};
+use crate::proof::Proof;
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
 use crate::search::SearchReport;
@@ -70,6 +71,15 @@ impl Bundle {
     /// Adds a file of text.
     pub fn add(&mut self, name: &str, text: String) {
         self.files.push(File { name: name.to_string(), bytes: text.into_bytes() });
+    }
+
+    /// The witnesses of refuted claims, as `refuted-<n>.toml`.
+    pub fn add_witnesses(&mut self, scenario: &Scenario, proof: &Proof) {
+        for (claim, file) in proof.claims.iter().zip(proof.witness_files()) {
+            if let (Some(witness), Some(file)) = (&claim.witness, file) {
+                self.add(&file, write_instance(witness, scenario));
+            }
+        }
     }
 
     /// Sheets as `stem.svg`, `stem-2.svg`, …, and the table of all nets as `stem.csv`.
@@ -144,7 +154,7 @@ fn of_searched(scenario: &Scenario, asked: &Asked, report: &SweepReport, search:
 /// The files of a review: `result.json`, `waves-typical`, a `waves-<kind>-<net or pattern>-<step>` for each of the worst
 /// findings whose failing case was run (at most [`MOST_PICTURES`]), `causes.csv` and a `case-<kind>-<net or
 /// pattern>-<step>.toml` for each finding that was looked into, `worst-<n>.toml` for the cases that only the directed
-/// search met, the files of the sweep and of the flow table.
+/// search met, `refuted-<n>.toml` for those that refute a claim of the proof, the files of the sweep and of the flow table.
 pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("result.json", json::review(scenario, review));
@@ -192,6 +202,9 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     }
     for file in case_files(review) {
         bundle.add(&file.name, write_instance(file.case, scenario));
+    }
+    if let Some(proof) = &review.proof {
+        bundle.add_witnesses(scenario, proof);
     }
     let sweep = of_searched(scenario, &review.asked, &review.sweep, review.search.as_ref());
     bundle.files.extend(sweep.files);

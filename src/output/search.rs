@@ -1,9 +1,11 @@
-//! Which cases of a directed search get a file.
+//! Which cases of a directed search get a file, and what file a rare finding has.
 
 use crate::circuit::NetId;
 use crate::findings::RuleKey;
 use crate::instance::Instance;
+use crate::proof::Claim;
 use crate::review::Review;
+use crate::sweep::Finding;
 
 /// Cases with a smaller margin that get a file, at most; all that break a rule do.
 const MARGINS: usize = 12;
@@ -41,4 +43,18 @@ pub(super) fn case_files(review: &Review) -> Vec<CaseFile<'_>> {
 /// The file of a question's case.
 pub(super) fn file_of<'a>(files: &'a [CaseFile<'_>], question: Option<u32>) -> Option<&'a str> {
     files.iter().find(|it| Some(it.question) == question).map(|it| it.name.as_str())
+}
+
+/// The claim that a rare finding refutes.
+pub(super) fn rare_claim<'a>(review: &'a Review, finding: &Finding) -> Option<&'a Claim> {
+    let question = finding.subject.question.filter(|_| finding.rare)?;
+    review.proof.as_ref()?.claims.iter().find(|claim| claim.question == question)
+}
+
+/// The file of the witness of a rare finding.
+pub(super) fn rare_file(review: &Review, finding: &Finding) -> Option<String> {
+    let question = rare_claim(review, finding)?.question;
+    let proof = review.proof.as_ref()?;
+    let mut files = proof.claims.iter().zip(proof.witness_files());
+    files.find(|(claim, _)| claim.question == question).and_then(|(_, file)| file)
 }

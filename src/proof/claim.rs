@@ -117,16 +117,19 @@ pub struct WindowProof {
 }
 
 impl Proof {
-    /// Names for the files of the witnesses, by claim.
+    /// Names for the files of the witnesses, by claim. A name goes with its question, so that a file of an earlier proof of
+    /// the same scenario, made within another budget, still refutes what its name says.
     pub fn witness_files(&self) -> Vec<Option<String>> {
-        let mut number = 0;
         let name = |claim: &Claim| {
-            claim.witness.as_ref().map(|_| {
-                number += 1;
-                format!("refuted-{number}.toml")
-            })
+            let number = claim.question + 1;
+            claim.witness.as_ref().map(|_| format!("refuted-{number}.toml"))
         };
         self.claims.iter().map(name).collect()
+    }
+
+    /// How many claims came out so.
+    pub fn count(&self, call: Call) -> u64 {
+        self.claims.iter().filter(|claim| claim.call == call).count() as u64
     }
 }
 
@@ -141,6 +144,8 @@ pub struct Proof {
     pub padding: Option<Padding>,
     /// Zones that were kept, in all explorations.
     pub zones: u64,
+    /// Zones that all explorations together were allowed, where that was bounded.
+    pub allowed: Option<u64>,
     /// What was left out, in whole sentences.
     pub notes: Vec<String>,
 }

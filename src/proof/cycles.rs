@@ -42,11 +42,21 @@ pub struct Cycle {
 /// cycle is left when nothing happens together. Each of a few explorations may spend the whole budget; if one of them ends
 /// early, the cycles found are real, but there may be others.
 pub fn comes_to_rest(plant: &Plant, starts: &[Vec<bool>], budget: &Budget) -> RestVerdict {
-    let (mut cycles, ended) = cycles(plant, starts, true, budget);
+    comes_to_rest_within(plant, starts, budget, &mut 0)
+}
+
+/// As [`comes_to_rest`]; adds the zones that were kept to `zones`.
+pub(super) fn comes_to_rest_within(
+    plant: &Plant,
+    starts: &[Vec<bool>],
+    budget: &Budget,
+    zones: &mut u64,
+) -> RestVerdict {
+    let (mut cycles, ended) = cycles(plant, starts, true, budget, zones);
     if cycles.is_empty() {
         return if ended == Ended::Complete { RestVerdict::Always } else { RestVerdict::Undecided(ended) };
     }
-    let (apart, ended) = self::cycles(plant, starts, false, budget);
+    let (apart, ended) = self::cycles(plant, starts, false, budget, zones);
     for cycle in &mut cycles {
         let found = apart.iter().any(|it| it.steps == cycle.steps);
         cycle.needs_ties = (found || ended == Ended::Complete).then_some(!found);
@@ -55,9 +65,10 @@ pub fn comes_to_rest(plant: &Plant, starts: &[Vec<bool>], budget: &Budget) -> Re
 }
 
 /// Real cycles, one for each number of steps taken, with or without things that happen together; and whether they are all.
-fn cycles(plant: &Plant, starts: &[Vec<bool>], joint: bool, budget: &Budget) -> (Vec<Cycle>, Ended) {
+fn cycles(plant: &Plant, starts: &[Vec<bool>], joint: bool, budget: &Budget, zones: &mut u64) -> (Vec<Cycle>, Ended) {
     let mode = Mode { joint, edges: true, ..Mode::default() };
     let found = explore(plant, starts, &Nothing, mode, budget);
+    *zones += found.zones;
     if found.ended != Ended::Complete {
         return (Vec::new(), found.ended);
     }
@@ -69,6 +80,7 @@ fn cycles(plant: &Plant, starts: &[Vec<bool>], joint: bool, budget: &Budget) -> 
     let mode = Mode { merge: Merge::Equality, ..mode };
     for budget in [&soon, budget] {
         let found = explore(plant, starts, &Nothing, mode, budget);
+        *zones += found.zones;
         let (leads, lasting) = trimmed(&found);
         if !lasting.is_empty() || !matches!(found.ended, Ended::Zones) {
             return (first_cycles(plant, &found, &leads, &lasting), found.ended);

@@ -9,6 +9,7 @@ mod explore;
 mod explored;
 mod firing;
 mod goals;
+mod grouped;
 mod joint;
 mod key;
 mod known;

@@ -3,7 +3,7 @@
 use std::collections::BTreeMap;
 
 use super::claim::{Call, Claim, Variation};
-use super::cycles::{Cycle, RestVerdict, comes_to_rest};
+use super::cycles::{Cycle, RestVerdict};
 use super::explored::Fired;
 use super::goals::Goal;
 use super::key::{Mover, bit};
@@ -40,7 +40,7 @@ impl Prover<'_> {
         let mut worst: BTreeMap<u32, Claim> = BTreeMap::new();
         for nets in self.parts() {
             let world = self.world(&nets, &[])?;
-            let cycles = match comes_to_rest(&world.plant, &world.starts, &self.budget) {
+            let cycles = match self.comes_to_rest(&world) {
                 RestVerdict::Always => Vec::new(),
                 RestVerdict::Cycles(cycles) => cycles,
                 RestVerdict::Undecided(ended) => {

@@ -9,10 +9,12 @@ use std::collections::BTreeMap;
 use std::time::{Duration, Instant};
 
 use super::claim::{Call, Claim, Proof, Variation};
+use super::cycles::{RestVerdict, comes_to_rest_within};
 use super::evidence::{Evidence, trails};
 use super::explore::explore;
 use super::explored::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE};
 use super::goals::Goal;
+use super::grouped::grouped;
 use super::key::bit;
 use super::plant::Plant;
 use super::system::{Points, Sense, System};
@@ -30,6 +32,11 @@ use crate::time::Span;
 /// Gates of a cone that may begin at random, at most: every start is explored.
 const RANDOM_GATES: usize = 12;
 
+/// Of what all explorations together may keep, the share that one may: one part in so many.
+const SHARE: u64 = 10;
+/// Gates of a cone that cost as much as a zone.
+const GATES_A_ZONE: usize = 64;
+
 /// Traces that are made into cases for one claim, at most.
 const WAYS: usize = 16;
 
@@ -43,6 +50,9 @@ pub(super) fn reached(_: &Plant, _: &Question) -> Goal {
 pub struct Spend {
     /// Zones of one exploration, at most.
     pub zones: u64,
+    /// Zones of all explorations together, at most; `None` for no bound. What begins when they are spent is undecided. A
+    /// cone counts as a zone for every 64 gates.
+    pub total: Option<u64>,
     /// Bytes of one exploration, at most.
     pub bytes: u64,
     /// Time for all, at most; `None` for no bound.
@@ -55,7 +65,14 @@ pub struct Spend {
 
 impl Default for Spend {
     fn default() -> Spend {
-        Spend { zones: 200_000, bytes: 1 << 30, time: None, margins: false, padding: false }
+        Spend { zones: 200_000, total: None, bytes: 1 << 30, time: None, margins: false, padding: false }
+    }
+}
+
+impl Spend {
+    /// So many zones in all, a tenth of them for one exploration, so that no question leaves the others without.
+    pub fn in_all(zones: u64) -> Spend {
+        Spend { zones: (zones / SHARE).max(1), total: Some(zones), ..Spend::default() }
     }
 }
 
@@ -68,6 +85,8 @@ pub fn prove(scenario: &Scenario, program: &Program, asked: &Asked, spend: &Spen
         control: control.clone(),
     };
     let mut prover = Prover::new(scenario, program, asked, budget);
+    prover.left = spend.total;
+    prover.proof.allowed = spend.total;
     prover.collects = spend.margins || spend.padding;
     prover.questions(&|_| true);
     prover.windows();
@@ -86,6 +105,8 @@ pub(super) struct Prover<'a> {
     pub(super) program: &'a Program,
     pub(super) asked: &'a Asked,
     pub(super) budget: Budget,
+    /// Zones that all explorations together may still keep.
+    left: Option<u64>,
     pub(super) proof: Proof,
     /// Is evidence kept?
     pub(super) collects: bool,
@@ -115,12 +136,14 @@ enum Looked {
 
 impl<'a> Prover<'a> {
     pub(super) fn new(scenario: &'a Scenario, program: &'a Program, asked: &'a Asked, budget: Budget) -> Prover<'a> {
-        Prover { scenario, program, asked, budget, proof: Proof::default(), collects: false, evidence: Vec::new() }
+        let (proof, collects, evidence) = (Proof::default(), false, Vec::new());
+        Prover { scenario, program, asked, budget, left: None, proof, collects, evidence }
     }
 
-    pub(super) fn world(&self, nets: &[NetId], spans: &[Span]) -> Result<World, Unsaid> {
+    pub(super) fn world(&mut self, nets: &[NetId], spans: &[Span]) -> Result<World, Unsaid> {
         let plant = Plant::of(self.scenario, nets, spans)
             .map_err(|what| Unsaid { call: Call::NotCovered, reason: what.to_string() })?;
+        self.spend((plant.gates.len() / GATES_A_ZONE) as u64);
         let starts = match self.program.start() {
             Some(start) => vec![plant.nets.iter().map(|net| start.ones.get(net.index())).collect()],
             None if plant.gates.len() > RANDOM_GATES => {
@@ -148,18 +171,52 @@ impl<'a> Prover<'a> {
 
     /// Explores as far as the budget goes, and says why no farther.
     fn explore_some<W: Watch>(&mut self, world: &World, watch: &W, mode: Mode) -> (Explored, Option<Unsaid>) {
-        let found = explore(&world.plant, &world.starts, watch, mode, &self.budget);
+        if let Some(spent) = self.spent() {
+            return (Explored::nothing(&world.plant), Some(spent));
+        }
+        let found = explore(&world.plant, &world.starts, watch, mode, &self.allowance());
         self.proof.zones += found.zones;
         let short = match found.ended {
             Ended::Complete | Ended::Hit => None,
             ended => Some(Unsaid { call: Call::Undecided, reason: self.why(ended) }),
         };
+        self.spend(found.zones);
         (found, short)
+    }
+
+    /// Does every window of a world come to rest?
+    pub(super) fn comes_to_rest(&mut self, world: &World) -> RestVerdict {
+        if self.spent().is_some() {
+            return RestVerdict::Undecided(Ended::Zones);
+        }
+        let mut zones = 0;
+        let verdict = comes_to_rest_within(&world.plant, &world.starts, &self.allowance(), &mut zones);
+        self.proof.zones += zones;
+        self.spend(zones);
+        verdict
+    }
+
+    /// What the next exploration may keep.
+    fn allowance(&self) -> Budget {
+        Budget { zones: self.left.map_or(self.budget.zones, |left| left.min(self.budget.zones)), ..self.budget.clone() }
+    }
+
+    fn spend(&mut self, zones: u64) {
+        self.left = self.left.map(|left| left.saturating_sub(zones));
+    }
+
+    /// Why nothing more is explored, where all zones are spent.
+    pub(super) fn spent(&self) -> Option<Unsaid> {
+        let zones = self.proof.allowed.filter(|_| self.left == Some(0))?;
+        Some(Unsaid { call: Call::Undecided, reason: format!("the budget of {zones} zones in all ran out") })
     }
 
     pub(super) fn why(&self, ended: Ended) -> String {
         match ended {
             Ended::Complete | Ended::Hit => "nothing stopped it".to_string(),
+            Ended::Zones if self.left.is_some_and(|left| left < self.budget.zones) => {
+                format!("the budget of {} zones in all ran out", self.proof.allowed.unwrap_or_default())
+            }
             Ended::Zones => format!("the budget of {} zones ran out", self.budget.zones),
             Ended::Bytes => format!("the budget of {} MiB ran out", self.budget.bytes >> 20),
             Ended::Seconds => "the time for the proof ran out".to_string(),
@@ -218,6 +275,10 @@ impl<'a> Prover<'a> {
         let total = groups.len() as u64;
         for (done, ((rule, index, net), questions)) in groups.into_iter().enumerate() {
             self.budget.control.report(done as u64, total);
+            if let Some(spent) = self.spent() {
+                self.unsaid(&questions, &spent);
+                continue;
+            }
             if let Err(unsaid) = self.group(rule, index, net, &questions) {
                 self.unsaid(&questions, &unsaid);
             }
@@ -631,7 +692,10 @@ impl<'a> Prover<'a> {
             match system.solve() {
                 Points::Some(point) => {
                     let instance = case(self.scenario, &world.plant, &system, &point, trace, start).instance;
-                    cases.push((system, instance));
+                    match grouped(self.scenario, &world.plant, &system, instance) {
+                        Some(instance) => cases.push((system, instance)),
+                        None => why = "the delays that were found are excluded by a group",
+                    }
                 }
                 Points::None => why = "no constant delays were found that show it",
                 Points::GaveUp => why = "the numbers of the linear program grew too large",

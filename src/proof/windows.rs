@@ -1,7 +1,7 @@
 //! What is known of whole windows: states at rest and settling times, over all delays.
 
 use super::claim::WindowProof;
-use super::cycles::{RestVerdict, comes_to_rest};
+use super::cycles::RestVerdict;
 use super::explored::Mode;
 use super::key::bit;
 use super::plant::Plant;
@@ -66,7 +66,7 @@ impl Prover<'_> {
             window.join(states);
         }
         // without an end there is no greatest settling time; what takes exactly equal times is left out
-        let (joint, ties) = match comes_to_rest(&world.plant, &world.starts, &self.budget) {
+        let (joint, ties) = match self.comes_to_rest(&world) {
             RestVerdict::Always => (true, false),
             RestVerdict::Cycles(cycles) if cycles.iter().all(|cycle| cycle.needs_ties == Some(true)) => (false, true),
             RestVerdict::Cycles(_) | RestVerdict::Undecided(_) => {

@@ -1,6 +1,7 @@
 //! The views put together: runs, states and sweep of one scenario, the checks of the views against each other, and the
 //! verdict. Plain data; nothing is drawn here.
 
+mod challenge;
 mod conditions;
 mod contained;
 mod departure;
@@ -14,12 +15,13 @@ mod why;
 
 use std::collections::BTreeMap;
 
+pub use challenge::{challenge, challenge_run};
 pub use conditions::{ByCondition, Cell, Compared, Comparison, by_condition, compare};
 pub use departure::{DepartureWords, departure_words};
 pub use report::{Call, Review, RunReport, StatesReport, Verdict};
 pub use single::{MOST_KEPT, run_heard, run_one, states};
 pub use sweeping::{Saved, Stops, Sweeper, sweep};
-pub use verdict::{grouped, verdict, without_draws};
+pub use verdict::{grouped, reviewed, verdict, without_draws};
 pub use why::{Away, Cut, Kept, LOOKED_INTO, Needs, Pull, Pulls, Ranks, Untold, Why, causes, mann_whitney};
 
 use crate::circuit::NetId;
@@ -28,6 +30,7 @@ use crate::engine::Program;
 use crate::findings::{Asked, Kind, RuleKey};
 use crate::flow::FlowError;
 use crate::instance::Which;
+use crate::proof::{Spend, prove};
 use crate::scenario::Scenario;
 use crate::search::{SearchReport, search};
 use crate::sweep::{SweepReport, worst_first};
@@ -55,7 +58,10 @@ impl From<FlowError> for ReviewError {
     }
 }
 
-/// The main job: stable states, typical run, sweep, failing cases, verdict.
+/// Zones that the proof of a review may keep in all, if nothing else is said.
+pub const PROOF_ZONES: u64 = 20_000;
+
+/// The main job: stable states, typical run, sweep, failing cases, verdict, and a proof within [`PROOF_ZONES`] zones.
 ///
 /// Every failing case is run again by itself and must show what the sweep found.
 pub fn review(
@@ -64,11 +70,29 @@ pub fn review(
     threads: usize,
     control: &Control,
 ) -> Result<Review, ReviewError> {
+    review_proving(scenario, program, PROOF_ZONES, threads, control)
+}
+
+/// As [`review`], with so many zones for the proof in all; 0: no proof.
+pub fn review_proving(
+    scenario: &Scenario,
+    program: &Program,
+    zones: u64,
+    threads: usize,
+    control: &Control,
+) -> Result<Review, ReviewError> {
     let asked = Asked::of(scenario);
     let states = states(scenario, control)?;
     let typical = run_one(scenario, program, &asked, Which::Typ, control).ok_or(ReviewError::Cancelled)?;
     let mut sweep = sweep(scenario, program, &asked, threads, control)?;
     let search = search_worst(scenario, program, &asked, &mut sweep, threads, control)?;
+    let proof = (zones > 0).then(|| prove(scenario, program, &asked, &Spend::in_all(zones), &quiet(control)));
+    if let Some(proof) = &proof {
+        challenge(scenario, &asked, proof, &sweep)?;
+        challenge_run(scenario, &asked, proof, &typical)?;
+        sweep.findings.extend(challenge::rare(scenario, program, &asked, proof, &sweep)?);
+        worst_first(&mut sweep.findings);
+    }
     let mut shown = Vec::new();
     for index in to_show(&asked, &sweep) {
         let finding = &sweep.findings[index];
@@ -80,12 +104,20 @@ pub fn review(
             let case = run.which.words();
             return Err(ReviewError::Contradiction(format!("{case} run alone does not show its {kind}")));
         }
+        if let Some(proof) = &proof {
+            challenge_run(scenario, &asked, proof, &run)?;
+        }
         shown.push((index, run));
     }
-    let verdict = verdict(scenario, &sweep);
+    let verdict = reviewed(scenario, &asked, &sweep, proof.as_ref());
     let mut why = causes(scenario, program, &asked, &sweep, threads, control)?;
     paths::fill_races(scenario, program, &asked, &sweep, &shown, &mut why, control);
-    Ok(Review { asked, states, typical: Some(typical), sweep, search, shown, why, verdict })
+    Ok(Review { asked, states, typical: Some(typical), sweep, search, proof, shown, why, verdict })
+}
+
+/// The same control without its progress, which is that of the draws.
+fn quiet(control: &Control) -> Control {
+    Control { progress: None, ..control.clone() }
 }
 
 /// Searches for the worst case of what no draw broke, if the plan says so, and adds what it breaks to the findings. Each

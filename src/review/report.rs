@@ -7,6 +7,7 @@ use crate::findings::{Against, Asked, Fact, Kind, Reason};
 use crate::flow::Flow;
 use crate::instance::{Instance, Which};
 use crate::logic::Bits;
+use crate::proof::Proof;
 use crate::search::SearchReport;
 use crate::sweep::SweepReport;
 
@@ -113,6 +114,9 @@ pub struct Review {
     pub sweep: SweepReport,
     /// The directed search with the scenario's own delays; `None` if none was asked for.
     pub search: Option<SearchReport>,
+    /// What holds for every delay in the ranges, within a small budget; `None` if none was asked for. What it refutes and
+    /// nothing else met is among the findings.
+    pub proof: Option<Proof>,
     /// For some findings (by index in `sweep.findings`) their failing case, run.
     pub shown: Vec<(usize, RunReport)>,
     /// For each finding of the sweep why it happens, where that was looked into.

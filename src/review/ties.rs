@@ -365,6 +365,7 @@ impl<'a> Search<'a> {
             sample: None,
             worst_sample: None,
             case: Some(Box::new(which.clone())),
+            rare: false,
         })
     }
 }

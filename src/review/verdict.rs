@@ -7,8 +7,9 @@ use super::departure::departure_words;
 use super::report::{Call, Verdict};
 use crate::circuit::NetId;
 use crate::delay::Marginal;
-use crate::findings::{Against, Kind, Question, Reason, RuleKey, Subject};
+use crate::findings::{Against, Asked, Kind, Question, Reason, RuleKey, Subject};
 use crate::instance::Which;
+use crate::proof::{Call as Claimed, Proof};
 use crate::scenario::Scenario;
 use crate::sweep::{Finding, RuleReport, SweepReport, Tie};
 
@@ -42,6 +43,28 @@ pub(super) fn of_one(scenario: &Scenario, sweep: &SweepReport) -> Verdict {
     }
     let reasons = broken.into_iter().chain(open).collect();
     Verdict { call, sentence, reasons }
+}
+
+/// The verdict of a review: that of its sweep, but *proved* where nothing was found and a proof says so of every question.
+/// A claim that is undecided or not covered leaves *no failure found*: a draw answered it.
+pub fn reviewed(scenario: &Scenario, asked: &Asked, sweep: &SweepReport, proof: Option<&Proof>) -> Verdict {
+    let said = verdict(scenario, sweep);
+    // under other conditions delays have other ranges
+    let all = proof.filter(|proof| {
+        let proved =
+            |question: u32| proof.claims.iter().any(|it| it.question == question && it.call == Claimed::Proved);
+        sweep.conditions.is_empty()
+            && !asked.questions.is_empty()
+            && (0..asked.questions.len() as u32).all(proved)
+            && proof.claims.iter().all(|it| it.call == Claimed::Proved)
+    });
+    match all {
+        Some(_) if said.call == Call::NoFailureFound => {
+            let sentence = format!("proved for every delay in the ranges; {}", said.sentence);
+            Verdict { call: Call::Proved, sentence, ..said }
+        }
+        _ => said,
+    }
 }
 
 fn draws_word(draw: Marginal, n: u64) -> &'static str {
@@ -108,9 +131,9 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
     );
     if let Some(case) = finding.case.as_deref().filter(|_| finding.count == 0) {
         if let Which::Given(_) = case {
-            return format!("{what} in no draw of {}, {}", grouped(finding.of), without_draws(case, finding.tie));
+            return format!("{what} in no draw of {}, {}", grouped(finding.of), without_draws(finding, case));
         }
-        return format!("{what} in no draw, {}", without_draws(case, finding.tie));
+        return format!("{what} in no draw, {}", without_draws(finding, case));
     }
     let equal = if finding.tie == Some(Tie::Vanishes) { " (only with exactly equal times)" } else { "" };
     // a rule for the whole run may break after several steps: its share is that of the rule
@@ -122,8 +145,12 @@ fn sentence(scenario: &Scenario, finding: &Finding, rule: Option<&RuleReport>) -
     }
 }
 
-/// What shows something that no draw shows.
-pub fn without_draws(case: &Which, tie: Option<Tie>) -> String {
+/// What shows a finding that no draw shows: this case of it.
+pub fn without_draws(finding: &Finding, case: &Which) -> String {
+    if finding.rare {
+        return "but refuted by the proof (rare)".to_string();
+    }
+    let tie = finding.tie;
     let delays = match case {
         Which::Given(_) => return "but met by directed search".to_string(),
         Which::Typ | Which::Min | Which::Max => format!("{} delays", case.words()),

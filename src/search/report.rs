@@ -165,6 +165,7 @@ impl SearchReport {
             sample: None,
             worst_sample: None,
             case: Some(Box::new(Which::Given(case.clone()))),
+            rare: false,
         })
         .collect()
     }

@@ -452,6 +452,7 @@ impl Judging<'_> {
             sample: Some(fact.first),
             worst_sample: Some(fact.worst.map_or(fact.first, |(_, sample)| sample)),
             case: None,
+            rare: false,
         }
     }
 }

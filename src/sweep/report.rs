@@ -242,6 +242,8 @@ pub struct Finding {
     pub worst_sample: Option<u64>,
     /// The case that shows it where no draw does.
     pub case: Option<Box<Which>>,
+    /// Refuted by a proof over all delays and met by nothing else; `case` is its witness.
+    pub rare: bool,
 }
 
 impl Finding {

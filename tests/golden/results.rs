@@ -6,6 +6,7 @@ use stillgate::circuit::NetId;
 use stillgate::findings::{Asked, Kind, Leg, Path, RacePair, Reason, RuleKey, Shape, Subject};
 use stillgate::instance::{Instance, Quantities, Quantity, Which};
 use stillgate::logic::{Bits, State, Value};
+use stillgate::proof::{Call as Claimed, Claim, Proof, Variation, WindowProof};
 use stillgate::review::{Away, Call, Cut, Kept, Needs, Pull, Pulls, Review, StatesReport, Untold, Verdict, Why};
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{
@@ -90,6 +91,7 @@ pub fn finding(kind: Kind, net: Option<NetId>, moment: u32, count: u64) -> Findi
         sample: Some(17),
         worst_sample: Some(8123),
         case: None,
+        rare: false,
     }
 }
 
@@ -239,6 +241,7 @@ pub fn review(scenario: &Scenario) -> Review {
         ],
         why: why(scenario, sweep.findings.len()),
         search: None,
+        proof: Some(proof(scenario)),
         sweep,
         asked,
         verdict: Verdict {
@@ -250,6 +253,42 @@ pub fn review(scenario: &Scenario) -> Review {
             ],
         },
     }
+}
+
+/// What a proof of [`cases::lock`] could say of its first questions.
+fn proof(scenario: &Scenario) -> Proof {
+    let claim = |question: u32, call: Claimed| Claim {
+        question,
+        call,
+        but_for_ties: false,
+        variation: None,
+        witness: None,
+        reason: None,
+        race: None,
+        margin: None,
+    };
+    let why = |reason: &str| Some(reason.to_string());
+    let claims = vec![
+        Claim {
+            but_for_ties: true,
+            variation: Some(Variation::Constant),
+            witness: Some(Box::new(Instance::of(scenario, &Which::Max))),
+            ..claim(0, Claimed::Refuted)
+        },
+        claim(1, Claimed::Proved),
+        Claim { reason: why("the budget of 2000 zones ran out"), ..claim(2, Claimed::Undecided) },
+        Claim { reason: why("the budget of 2000 zones ran out"), ..claim(3, Claimed::Undecided) },
+        Claim { reason: why("nothing stopped it"), ..claim(4, Claimed::Undecided) },
+        Claim { reason: why("the proof does not know clocks yet: tick"), ..claim(5, Claimed::NotCovered) },
+    ];
+    let window = WindowProof {
+        moment: 1,
+        states: Some(vec![state("110110")]),
+        settling: Some((Span::ZERO, Span::from_fs(25_000_001))),
+        settling_below: true,
+        settling_but_for_ties: false,
+    };
+    Proof { claims, windows: vec![window], zones: 12_345, allowed: Some(20_000), ..Proof::default() }
 }
 
 /// Why the first findings of [`review`] could happen: one needs two delays, one is cut short, of the others nothing is told.

@@ -9,15 +9,20 @@ use crate::proof::{Claim, Margin, Padding, PaddingEnd, Proof, Race, Sum};
 use crate::scenario::{Padded, Scenario};
 use crate::time::Span;
 
+/// A proof; `format`, `title` and `unit` are those of its own document.
 #[derive(Serialize)]
-struct Document<'a> {
-    format: u32,
-    title: &'a str,
-    unit: &'a str,
+pub(super) struct Document<'a> {
+    #[serde(skip_serializing_if = "Option::is_none")]
+    format: Option<u32>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    title: Option<&'a str>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    unit: Option<&'a str>,
     claims: Vec<Told<'a>>,
     windows: Vec<Window<'a>>,
     padding: Option<ThePadding>,
     zones: u64,
+    zones_in_all: Option<u64>,
     notes: &'a [String],
 }
 
@@ -145,7 +150,22 @@ struct Window<'a> {
 }
 
 /// The document of `prove`. `files` are the names of the files of the witnesses, by claim.
-pub fn prove<'a>(scenario: &'a Scenario, asked: &'a Asked, proof: &'a Proof, files: &'a [Option<String>]) -> String {
+pub fn prove(scenario: &Scenario, asked: &Asked, proof: &Proof, files: &[Option<String>]) -> String {
+    super::document(&Document {
+        format: Some(super::FORMAT),
+        title: Some(&scenario.title),
+        unit: Some(scenario.unit.name()),
+        ..document(scenario, asked, proof, files)
+    })
+}
+
+/// The proof of a review: the same keys.
+pub(super) fn document<'a>(
+    scenario: &'a Scenario,
+    asked: &'a Asked,
+    proof: &'a Proof,
+    files: &'a [Option<String>],
+) -> Document<'a> {
     let (circuit, unit) = (&*scenario.circuit, scenario.unit);
     let told = |(claim, file): (&'a Claim, &'a Option<String>)| {
         let question = &asked.questions[claim.question as usize];
@@ -171,14 +191,15 @@ pub fn prove<'a>(scenario: &'a Scenario, asked: &'a Asked, proof: &'a Proof, fil
         settling_below: window.settling_below,
         settling_but_for_ties: window.settling_but_for_ties,
     });
-    super::document(&Document {
-        format: super::FORMAT,
-        title: &scenario.title,
-        unit: unit.name(),
+    Document {
+        format: None,
+        title: None,
+        unit: None,
         claims: proof.claims.iter().zip(files).map(told).collect(),
         windows: windows.collect(),
         padding: proof.padding.as_ref().map(|it| padding(scenario, it)),
         zones: proof.zones,
+        zones_in_all: proof.allowed,
         notes: &proof.notes,
-    })
+    }
 }

@@ -4,12 +4,13 @@ use serde::Serialize;
 
 use super::listed::MOST_VALUES;
 use super::parts::Lines;
+use super::prove;
 use super::run::Run;
 use super::search::{Question, search};
 use super::states::States;
 use super::sweep::Sweep;
 use crate::instance::Which;
-use crate::output::search::{case_files, file_of};
+use crate::output::search::{case_files, file_of, rare_file};
 use crate::review::Review;
 use crate::scenario::Scenario;
 
@@ -27,16 +28,19 @@ struct Whole<'a> {
     typical: Option<Run<'a>>,
     sweep: Sweep<'a>,
     search: Option<Lines<Question<'a>>>,
-    proof: Option<()>,
+    proof: Option<prove::Document<'a>>,
 }
 
-/// The document of `review`. `states`, `typical` and `sweep` have the keys of their own documents, but for `format`.
+/// The document of `review`. `states`, `typical`, `sweep` and `proof` have the keys of their own documents, but for `format`.
 pub fn review(scenario: &Scenario, review: &Review) -> String {
     let asked = &review.asked;
     let files = case_files(review);
     let mut sweep = Sweep::of(scenario, asked, &review.sweep, None).explained(scenario, review);
+    let witnesses = review.proof.as_ref().map_or_else(Vec::new, |proof| proof.witness_files());
     for (told, finding) in sweep.findings.iter_mut().zip(&review.sweep.findings) {
-        if let Some(Which::Given(_)) = finding.case.as_deref() {
+        if finding.rare {
+            told.case = rare_file(review, finding);
+        } else if let Some(Which::Given(_)) = finding.case.as_deref() {
             told.case = file_of(&files, finding.subject.question).map(String::from);
         }
     }
@@ -53,6 +57,6 @@ pub fn review(scenario: &Scenario, review: &Review) -> String {
         typical: review.typical.as_ref().map(|run| Run::of(scenario, asked, run, None)),
         sweep,
         search: search(scenario, review, &files),
-        proof: None,
+        proof: review.proof.as_ref().map(|proof| prove::document(scenario, asked, proof, &witnesses)),
     })
 }

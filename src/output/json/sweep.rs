@@ -113,6 +113,8 @@ pub(super) struct Found<'a> {
     sample: Option<u64>,
     worst_sample: Option<u64>,
     pub(super) case: Option<String>,
+    #[serde(skip_serializing_if = "std::ops::Not::not")]
+    rare: bool,
     #[serde(skip_serializing_if = "Option::is_none")]
     reference: Option<Departed<'a>>,
     #[serde(skip_serializing_if = "Option::is_none")]
@@ -356,6 +358,7 @@ fn finding<'a>(scenario: &'a Scenario, asked: &'a Asked, finding: &Finding) -> F
         sample: finding.sample,
         worst_sample: finding.worst_sample,
         case: finding.case.as_ref().map(|case| case.key()),
+        rare: finding.rare,
         reference: finding.against.as_ref().map(|it| Departed::of(scenario, it)),
         needs: None,
         pull: None,

@@ -62,7 +62,7 @@ fn only(paper: &mut Paper, page: &Page<'_>, scenario: &Scenario, asked: &Asked, 
     for (condition, finding) in only.iter().take(MOST) {
         let name = &condition.condition.name;
         let seen = match finding.case.as_deref().filter(|_| finding.count == 0) {
-            Some(case) => format!("in no draw, {}", without_draws(case, finding.tie)),
+            Some(case) => format!("in no draw, {}", without_draws(finding, case)),
             None => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
         };
         let text = format!("only under condition {name}: {}: {seen}", about(scenario, asked, &finding.subject));

@@ -20,7 +20,7 @@ const TOLD: usize = 3;
 const LINES: usize = 2;
 /// With more findings that break a rule than this, paths of others are told in the JSON only.
 const FEW: usize = 2;
-/// Most findings listed that break no rule; one less where more than a few break one.
+/// Most findings listed that break no rule; two less where more than a few break one.
 const LISTED: usize = 3;
 
 /// What a finding is about: `glitch static-0, open_lower, step together`.
@@ -72,7 +72,7 @@ pub(super) fn worst(kind: Kind, worst: Worst) -> String {
 /// How often, how surely, how bad.
 fn figures(scenario: &Scenario, finding: &Finding) -> String {
     let mut text = match finding.case.as_deref().filter(|_| finding.count == 0) {
-        Some(case) => format!("in no draw, {}", without_draws(case, finding.tie)),
+        Some(case) => format!("in no draw, {}", without_draws(finding, case)),
         None => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
     };
     if let Some(share) = finding.share {
@@ -224,15 +224,20 @@ pub(super) fn findings(
             if i < TOLD {
                 race(paper, page, scenario, of(finding), &mut told);
             }
-            match finding.shown_by() {
-                Some(Which::Given(_)) => {
-                    let file = searching.and_then(|it| file_of(it.files, finding.subject.question));
-                    if let Some(file) = file {
-                        paper.whole(4, &page.replay_file(file));
+            if let Some((race, replay)) = causes.as_ref().and_then(|causes| causes.rare(page, scenario, finding)) {
+                race.iter().for_each(|race| paper.hang(4, 6, Tone::Plain, race));
+                paper.whole(4, &replay);
+            } else {
+                match finding.shown_by() {
+                    Some(Which::Given(_)) => {
+                        let file = searching.and_then(|it| file_of(it.files, finding.subject.question));
+                        if let Some(file) = file {
+                            paper.whole(4, &page.replay_file(file));
+                        }
                     }
+                    Some(case) => paper.whole(4, &page.replay(&case, None)),
+                    None => {}
                 }
-                Some(case) => paper.whole(4, &page.replay(&case, None)),
-                None => {}
             }
             if let Some(cause) = cause {
                 cause.say(paper);
@@ -259,7 +264,7 @@ pub(super) fn findings(
     if !listed.is_empty() {
         paper.heading("Also seen, breaks no rule");
         // where much is broken less is said of the rest
-        let most = if broken.len() > FEW { LISTED - 1 } else { LISTED };
+        let most = if broken.len() > FEW { LISTED - 2 } else { LISTED };
         for (i, group) in listed.iter().take(most).enumerate() {
             paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures(scenario)));
             if i == 0 && broken.len() <= FEW {

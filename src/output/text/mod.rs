@@ -3,6 +3,7 @@
 //! Lists are shortened, and say by how much and which file has the rest. Colour, where the caller wants it, is only added
 //! to words that say the same. A text about a sweep never says more than "no failure found".
 
+mod challenge;
 mod check;
 mod conditions;
 mod findings;

@@ -4,7 +4,7 @@ use super::Page;
 use super::paper::{Paper, Tone};
 use super::search::{Searching, search};
 use super::why::Causes;
-use super::{conditions, findings, flow, notes, rules, steps, sure, ties};
+use super::{challenge, conditions, findings, flow, notes, rules, steps, sure, ties};
 use crate::output::search::case_files;
 use crate::output::words;
 use crate::review::{Call, Review, Verdict};
@@ -22,6 +22,7 @@ pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
     let searching = review.search.as_ref().map(|report| Searching { report, files: &files });
     let mut causes = Causes::of(scenario, review);
     body(&mut paper, page, scenario, &review.asked, &review.sweep, searching, Some(&mut causes));
+    challenge::challenge(&mut paper, scenario, review);
     flow::short(&mut paper, scenario, &review.states.flow);
     notes::notes(&mut paper, scenario);
     paper.finish()

@@ -100,6 +100,9 @@ pub(super) fn margins(paper: &mut Paper, scenario: &Scenario, report: &SweepRepo
     // a rule that one of its steps broke is among the findings
     least.retain(|(rule, margin, _)| rule.broken == 0 && *margin >= 0);
     least.retain(|(rule, ..)| !searching.is_some_and(|it| it.broke(|number| same_rule(rule, number))));
+    // nor is one without a failure that the proof refutes
+    let rare = report.findings.iter().filter(|finding| finding.rare).filter_map(|it| it.subject.question);
+    least.retain(|(rule, ..)| !rare.clone().any(|number| same_rule(rule, number)));
     least.sort_by_key(|entry| entry.1);
     if least.is_empty() {
         return;

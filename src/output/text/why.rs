@@ -2,7 +2,8 @@
 
 use super::Page;
 use super::paper::{Paper, Tone};
-use crate::output::{causes, words};
+use crate::output::search::{rare_claim, rare_file};
+use crate::output::{causes, deciding, words};
 use crate::review::{Away, Pull, Review, Why};
 use crate::scenario::Scenario;
 use crate::sweep::Finding;
@@ -31,6 +32,13 @@ impl<'a> Causes<'a> {
     /// One a finding of the sweep.
     pub fn why(&self) -> &'a [Option<Why>] {
         &self.review.why
+    }
+
+    /// Of a rare finding the inequality that decides it, where one is known, and the command that replays its witness.
+    pub fn rare(&self, page: &Page<'_>, scenario: &Scenario, finding: &Finding) -> Option<(Option<String>, String)> {
+        let claim = rare_claim(self.review, finding)?;
+        let file = rare_file(self.review, finding)?;
+        Some((claim.race.as_ref().map(|race| deciding::race(scenario, race)), page.replay_file(&file)))
     }
 
     /// Is something left to the table?
