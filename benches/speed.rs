@@ -2,7 +2,11 @@
 //!
 //! Every benchmark asserts its answer. Items are events (transitions of nets), samples or states.
 
+#[allow(dead_code)] // other programs use the rest
+mod networks;
 mod replay;
+#[allow(dead_code)]
+mod workloads;
 
 use divan::counter::ItemsCount;
 use divan::{Bencher, black_box};
@@ -15,58 +19,10 @@ use stillgate::instance::{Instance, Sampler, Which};
 use stillgate::scenario::{Builder, NewStep, Scenario};
 use stillgate::statics::StateSet;
 use stillgate::sweep::{Tally, run_samples};
+use workloads::{dividers, latch};
 
 fn main() {
     divan::main();
-}
-
-/// A latch of two NANDs, set and reset 100 times each.
-fn latch() -> Scenario {
-    let mut b = Builder::new("latch");
-    b.input("s", true);
-    b.input("r", true);
-    b.gate("q", Function::Nand, ["s", "qn"]).delay(["6", "9", "14"]);
-    b.gate("qn", Function::Nand, ["r", "q"]).delay(["6", "9", "14"]);
-    b.initial("q", false);
-    for i in 0..400 {
-        let net = if i % 4 < 2 { "s" } else { "r" };
-        b.step(NewStep::after("50").set(net, i % 2 == 1));
-    }
-    b.rules().glitch_free("q");
-    b.samples(10_000);
-    b.finish().expect("the latch is a good scenario")
-}
-
-/// Six NANDs that halve the frequency of `clock`; the output is `{name}.q`.
-fn divider(b: &mut Builder, name: &str, clock: &str) {
-    let n = |part: &str| format!("{name}.{part}");
-    let nand = |b: &mut Builder, out: &str, ins: &[String]| {
-        b.gate(n(out), Function::Nand, ins.iter().map(String::as_str)).delay(["6", "9", "14"]);
-    };
-    nand(b, "n1", &[n("n4"), n("n2")]);
-    nand(b, "n2", &[n("n1"), clock.to_string()]);
-    nand(b, "n3", &[n("n2"), clock.to_string(), n("n4")]);
-    nand(b, "n4", &[n("n3"), n("qn")]);
-    nand(b, "q", &[n("n2"), n("qn")]);
-    nand(b, "qn", &[n("n3"), n("q")]);
-    b.initial(n("q"), false); // the clock at 0 decides the rest
-}
-
-/// A chain of dividers, each driven by the output of the one before, with this many edges of the first clock.
-fn dividers(stages: usize, edges: usize) -> Scenario {
-    let mut b = Builder::new("dividers");
-    b.input("clock", false);
-    let mut clock = "clock".to_string();
-    for stage in 0..stages {
-        divider(&mut b, &format!("d{stage}"), &clock);
-        clock = format!("d{stage}.q");
-    }
-    for i in 0..edges {
-        b.step(NewStep::after("1000").set("clock", i % 2 == 0));
-    }
-    b.rules().glitch_free(clock.as_str());
-    b.output(clock.as_str());
-    b.finish().expect("the dividers are a good scenario")
 }
 
 /// 100,000 gates: 20 rows of 5,000 XORs, each gate reads two gates of the row before; 500 inputs change at each step.
@@ -100,9 +56,9 @@ fn grid() -> Scenario {
 
 fn scenario(name: &str) -> Scenario {
     match name {
-        "latch of 2, 400 steps" => latch(),
-        "divider of 6, 200 edges" => dividers(1, 200),
-        "ripple of 48, 200 edges" => dividers(8, 200),
+        "latch of 2, 400 steps" => latch(400),
+        "divider of 6, 200 edges" => dividers(1, 0, 200),
+        "ripple of 48, 200 edges" => dividers(8, 0, 200),
         _ => grid(),
     }
 }
@@ -181,27 +137,11 @@ fn judges_alone(bencher: Bencher<'_, '_>, circuit: &str) {
     assert!(judge.sink.windows.iter().all(|window| window.settled == runs), "every window is judged in every run");
 }
 
-/// A latch with four changes of its inputs: eight events a sample.
-fn short() -> Scenario {
-    let mut b = Builder::new("short");
-    b.input("s", true);
-    b.input("r", true);
-    b.gate("q", Function::Nand, ["s", "qn"]).delay(["6", "9", "14"]);
-    b.gate("qn", Function::Nand, ["r", "q"]).delay(["6", "9", "14"]);
-    b.initial("q", false);
-    for (net, value) in [("s", false), ("s", true), ("r", false), ("r", true)] {
-        b.step(NewStep::after("50").set(net, value));
-    }
-    b.rules().glitch_free("q");
-    b.samples(10_000_000);
-    b.finish().expect("the latch is a good scenario")
-}
-
 /// Short samples on one and on two threads: drawing, reset, run, judges and tally; the items are samples.
 #[divan::bench(args = [1, 2], sample_count = 20)]
 fn short_samples(bencher: Bencher<'_, '_>, threads: usize) {
     const SAMPLES: u64 = 50_000;
-    let scenario = short();
+    let scenario = latch(4);
     let program = Program::new(&scenario, &Control::default()).expect("it begins at rest");
     let asked = Asked::of(&scenario);
     bencher.counter(ItemsCount::new(SAMPLES)).bench_local(|| {
@@ -215,7 +155,7 @@ fn short_samples(bencher: Bencher<'_, '_>, threads: usize) {
 /// Samples of the latch, on one and on two threads.
 #[divan::bench(args = [1, 2], sample_count = 10)]
 fn sweep_of_2000_latches(bencher: Bencher<'_, '_>, threads: usize) {
-    let scenario = latch();
+    let scenario = latch(400);
     let program = Program::new(&scenario, &Control::default()).expect("it begins at rest");
     let asked = Asked::of(&scenario);
     bencher.counter(ItemsCount::new(2000u64)).bench_local(|| {
@@ -229,7 +169,7 @@ fn sweep_of_2000_latches(bencher: Bencher<'_, '_>, threads: usize) {
 /// All stable states of a chain of six-NAND dividers.
 #[divan::bench(args = [8, 64], sample_count = 10)]
 fn states_of_dividers(bencher: Bencher<'_, '_>, stages: usize) {
-    let scenario = dividers(stages, 1);
+    let scenario = dividers(stages, 0, 1);
     let circuit: &Circuit = &scenario.circuit;
     bencher.bench_local(|| {
         let set = StateSet::of(circuit, &Control::default()).expect("within the budget");

@@ -7,6 +7,7 @@
 //! one note ends it: oscillating, not exactly periodic. No batch reproduces a note if since then a gate of the block has
 //! scheduled an event whose delay is its own, whatever the remaining times: nothing says that the same follows again.
 
+use super::level::Level;
 use crate::circuit::{Circuit, NetId};
 use crate::logic::Value;
 use crate::time::Span;
@@ -28,26 +29,30 @@ pub(super) struct Recurred {
     pub moving: Vec<(NetId, u32)>,
 }
 
-/// What is noted of a node.
+/// What is noted of a node. The kernel keeps it with the node, whose memory an event touches anyway.
 #[derive(Clone, Copy, Debug)]
-struct Slot {
-    noted: Value,
-    /// Does it have another value now?
-    differs: bool,
+pub(super) struct Mark<L> {
     /// How often it has moved since.
     moves: u32,
+    noted: L,
+    /// Does it have another value now?
+    differs: bool,
+}
+
+impl<L> Mark<L> {
+    /// A node of this value is noted.
+    #[inline]
+    pub(super) fn new(value: L) -> Mark<L> {
+        Mark { moves: 0, noted: value, differs: false }
+    }
 }
 
 #[derive(Clone, Debug, Default)]
 struct Note {
-    active: bool,
     /// How many events with delays of their own the block had scheduled.
     own: u64,
     at: u64,
-    /// One a member.
-    slots: Vec<Slot>,
     pending: Vec<Rest>,
-    differing: u32,
     passes: u32,
     last_pass: u64,
     least: u64,
@@ -61,18 +66,19 @@ struct Counter {
     /// At or above this count a transition needs a closer look; 0 while a note is active.
     watch: u64,
     next_note: u64,
+    /// Nodes that have another value than noted.
+    differing: u32,
     recurred: bool,
 }
 
 impl Counter {
-    const NEW: Counter = Counter { count: 0, watch: FIRST_NOTE, next_note: FIRST_NOTE, recurred: false };
+    const NEW: Counter = Counter { count: 0, watch: FIRST_NOTE, next_note: FIRST_NOTE, differing: 0, recurred: false };
 }
 
 /// The state of the search, for every block of a circuit. Nodes are gates, then wires.
 #[derive(Clone, Debug)]
 pub(super) struct Recurrence {
     block_of: Vec<u32>,
-    slot: Vec<u32>,
     member_start: Vec<u32>,
     members: Vec<u32>,
     gates: u32,
@@ -84,6 +90,8 @@ pub(super) struct Recurrence {
     found: Vec<(u32, Recurred)>,
     notes: Vec<Note>,
     touched: Vec<u32>,
+    /// Blocks whose nodes are to be marked.
+    noted: Vec<u32>,
     stamp: Vec<u64>,
     batch: u64,
 }
@@ -106,11 +114,9 @@ impl Recurrence {
         }
         let mut next = member_start.clone();
         let mut members = vec![0u32; block_of.len()];
-        let mut slot = vec![0u32; block_of.len()];
         for (node, block) in block_of.iter().enumerate() {
             let place = &mut next[*block as usize];
             members[*place as usize] = node as u32;
-            slot[node] = *place - member_start[*block as usize];
             *place += 1;
         }
         let mut reading = Vec::new();
@@ -127,7 +133,6 @@ impl Recurrence {
             .collect();
         Recurrence {
             block_of,
-            slot,
             member_start,
             members,
             gates: gates as u32,
@@ -137,6 +142,7 @@ impl Recurrence {
             found: Vec::new(),
             notes: vec![Note::default(); blocks],
             touched: Vec::new(),
+            noted: Vec::new(),
             stamp: vec![0; blocks],
             batch: 0,
         }
@@ -177,29 +183,34 @@ impl Recurrence {
 
     /// A node of a block takes a new value, and [`Recurrence::count`] or [`Recurrence::watches`] said so. Returns whether
     /// [`Recurrence::end_batch`] must be called.
-    pub(super) fn moved(&mut self, node: u32, block: u32, new: Value) -> bool {
+    #[inline]
+    pub(super) fn moved<L: Level>(&mut self, block: u32, mark: &mut Mark<L>, new: L) -> bool {
         let b = block as usize;
-        let counter = self.counters[b];
-        if counter.recurred {
+        let counter = &mut self.counters[b];
+        let mut look = counter.count >= counter.next_note;
+        if counter.watch == 0 {
+            // three values: a net may move between two values that both differ from the note
+            let differs = mark.noted != new;
+            counter.differing = counter.differing + u32::from(differs) - u32::from(mark.differs);
+            mark.differs = differs;
+            mark.moves += 1;
+            look |= counter.differing == 0;
+        } else if counter.recurred {
             return false;
         }
-        let note = &mut self.notes[b];
-        let mut same = false;
-        if counter.watch == 0 && note.active {
-            let slot = &mut note.slots[self.slot[node as usize] as usize];
-            // three values: a net may move between two values that both differ from the note
-            let differs = slot.noted != new;
-            note.differing = note.differing + u32::from(differs) - u32::from(slot.differs);
-            slot.differs = differs;
-            slot.moves += 1;
-            same = note.differing == 0;
-        }
-        let look = same || counter.count >= counter.next_note;
-        if look && self.stamp[b] != self.batch + 1 {
-            self.stamp[b] = self.batch + 1;
-            self.touched.push(block);
+        if look {
+            self.touch(block);
         }
         look
+    }
+
+    #[cold]
+    fn touch(&mut self, block: u32) {
+        let stamp = &mut self.stamp[block as usize];
+        if *stamp != self.batch + 1 {
+            *stamp = self.batch + 1;
+            self.touched.push(block);
+        }
     }
 
     /// Must [`Recurrence::end_batch`] be called?
@@ -208,13 +219,13 @@ impl Recurrence {
         !self.touched.is_empty()
     }
 
-    /// Looks at the blocks that moved in the batch at `now`. `value` gives a node's value, `pending` appends a node's
+    /// Looks at the blocks that moved in the batch at `now`. `mark` gives a node's mark, `pending` appends a node's
     /// pending events in order; `own` counts the events with delays of their own that a node has scheduled.
     #[cold]
-    pub(super) fn end_batch(
+    pub(super) fn end_batch<L: Level>(
         &mut self,
         now: u64,
-        value: &impl Fn(u32) -> Value,
+        mark: &impl Fn(u32) -> Mark<L>,
         pending: &impl Fn(u32, &mut Vec<Rest>),
         own: &impl Fn(u32) -> u64,
         net_of: &impl Fn(u32) -> NetId,
@@ -224,17 +235,17 @@ impl Recurrence {
         // of blocks that recur in one batch the lower number counts as the first
         touched.sort_unstable();
         for block in &touched {
-            self.look(*block, now, value, pending, own, net_of);
+            self.look(*block, now, mark, pending, own, net_of);
         }
         self.touched = touched;
         self.touched.clear();
     }
 
-    fn look(
+    fn look<L: Level>(
         &mut self,
         block: u32,
         now: u64,
-        value: &impl Fn(u32) -> Value,
+        mark: &impl Fn(u32) -> Mark<L>,
         pending: &impl Fn(u32, &mut Vec<Rest>),
         own: &impl Fn(u32) -> u64,
         net_of: &impl Fn(u32) -> NetId,
@@ -242,22 +253,21 @@ impl Recurrence {
         let b = block as usize;
         let members = &self.members[self.member_start[b] as usize..self.member_start[b + 1] as usize];
         let note = &mut self.notes[b];
-        let active = self.counters[b].watch == 0 && note.active;
-        if active && note.differing == 0 {
+        if self.counters[b].watch == 0 && self.counters[b].differing == 0 {
             let mut rest = Vec::new();
             for node in members {
                 pending(*node, &mut rest);
             }
-            let moving = |note: &Note| {
+            let moving = || {
                 members
                     .iter()
-                    .zip(&note.slots)
-                    .filter(|(node, slot)| **node < self.gates && slot.moves > 0)
-                    .map(|(node, slot)| (net_of(*node), slot.moves))
+                    .map(|node| (*node, mark(*node).moves))
+                    .filter(|(node, moves)| *node < self.gates && *moves > 0)
+                    .map(|(node, moves)| (net_of(node), moves))
                     .collect()
             };
             let found = if rest == note.pending && note.own == members.iter().map(|node| own(*node)).sum::<u64>() {
-                Some(Recurred { period: Span::from_fs(now - note.at), range: None, moving: moving(note) })
+                Some(Recurred { period: Span::from_fs(now - note.at), range: None, moving: moving() })
             } else {
                 let gap = now - note.last_pass;
                 note.least = note.least.min(gap);
@@ -267,11 +277,10 @@ impl Recurrence {
                 (note.passes == PASSES).then(|| Recurred {
                     period: Span::from_fs((now - note.at) / u64::from(PASSES)),
                     range: Some((Span::from_fs(note.least), Span::from_fs(note.greatest))),
-                    moving: moving(note),
+                    moving: moving(),
                 })
             };
             if let Some(found) = found {
-                note.active = false;
                 self.counters[b].recurred = true;
                 self.counters[b].watch = u64::MAX;
                 self.found.push((block, found));
@@ -283,22 +292,27 @@ impl Recurrence {
             while counter.next_note <= counter.count {
                 counter.next_note *= 2;
             }
-            note.active = true;
             note.own = members.iter().map(|node| own(*node)).sum();
             note.at = now;
-            note.slots.clear();
-            let slot = |node: &u32| Slot { noted: value(*node), differs: false, moves: 0 };
-            note.slots.extend(members.iter().map(slot));
             note.pending.clear();
             for node in members {
                 pending(*node, &mut note.pending);
             }
-            note.differing = 0;
             note.passes = 0;
             note.last_pass = now;
             note.least = u64::MAX;
             note.greatest = 0;
             counter.watch = 0;
+            counter.differing = 0;
+            self.noted.push(block);
+        }
+    }
+
+    /// Calls back for each node that is to be marked anew after [`Recurrence::end_batch`].
+    pub(super) fn mark_anew(&mut self, mut each: impl FnMut(u32)) {
+        for block in self.noted.drain(..) {
+            let b = block as usize;
+            self.members[self.member_start[b] as usize..self.member_start[b + 1] as usize].iter().for_each(|node| each(*node));
         }
     }
 

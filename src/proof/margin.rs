@@ -33,6 +33,9 @@ pub enum MarginEnd {
     Budget,
 }
 
+/// The least factor under which something is possible, and the least change of it that matters, where there is one.
+type Cut = (Ratio, Option<Ratio>);
+
 impl MarginEnd {
     /// The word used in files.
     pub const fn word(self) -> &'static str {
@@ -99,9 +102,9 @@ impl Prover<'_> {
     }
 
     /// The least factor under which something that speaks against a claim is possible, and a change of it that matters.
-    fn cut(&self, evidence: &[Evidence]) -> Option<(Ratio, Option<Ratio>)> {
-        let of = |evidence: &Evidence| -> Option<(Ratio, Option<Ratio>)> {
-            let mut most: Option<(Ratio, Option<Ratio>)> = None;
+    fn cut(&self, evidence: &[Evidence]) -> Option<Cut> {
+        let of = |evidence: &Evidence| -> Option<Cut> {
+            let mut most: Option<Cut> = None;
             for trail in &evidence.trails {
                 let Least::At { factor, step, .. } = trail.least(self.scenario) else { return None };
                 if most.is_none_or(|it| it.0 < factor) {
@@ -117,7 +120,7 @@ impl Prover<'_> {
         let question = claim.question;
         let mut good = Ratio::ZERO;
         // what is not proved: under which factor, what its claim is, and the least factor of its traces
-        let mut bad: Option<(Ratio, Claim, Option<(Ratio, Option<Ratio>)>)> = None;
+        let mut bad: Option<(Ratio, Claim, Option<Cut>)> = None;
         match claim.call {
             Call::NotCovered => return None,
             Call::Proved => good = Ratio::ONE,

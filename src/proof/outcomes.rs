@@ -181,7 +181,7 @@ impl Prover<'_> {
             Least::Never | Least::GaveUp => Ratio::ZERO,
         };
         let mut all: Vec<(Ratio, &State, &Reached)> = reached.iter().map(|(state, it)| (far(it), state, it)).collect();
-        all.sort_by(|a, b| b.0.cmp(&a.0));
+        all.sort_by_key(|it| std::cmp::Reverse(it.0));
         all.into_iter().find_map(|(_, state, it)| {
             let shows = |case: &Instance| self.passage(case, moment).is_some_and(|(_, after)| after == *state);
             self.deciding(world, &it.system, (&it.trace, &it.start), ties, &shows)

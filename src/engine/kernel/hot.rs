@@ -127,13 +127,13 @@ impl<'a, L: Level, Q: Queue, P: Pending, T: Copy + Default> Hot<'a, L, Q, P, T> 
         if P::MANY && node.kind.rule == Rule::Wire {
             self.arrivals += 1;
             let wire = WireId(index - self.plan.gates);
-            let watched = self.recurrence.watches(block) && self.recurrence.moved(index, block, new.value());
+            let watched = self.recurrence.watches(block) && self.recurrence.moved(block, &mut node.mark, new);
             Fired { old, new, tag: observer.arrival(time, wire, new.value(), cause), watched, fan }
         } else {
             let net = NetId(self.inputs + index);
             self.transitions += 1;
             new.write(self.state, net.index());
-            let watched = self.recurrence.count(block) && self.recurrence.moved(index, block, new.value());
+            let watched = self.recurrence.count(block) && self.recurrence.moved(block, &mut node.mark, new);
             Fired { old, new, tag: observer.change(time, net, new.value(), cause), watched, fan }
         }
     }

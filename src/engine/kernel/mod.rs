@@ -21,7 +21,7 @@ use super::observer::{End, Finish, Hit, Observer, Opening};
 use super::plan::{Plan, Rule};
 use super::queue::{NEVER, Queue};
 use super::recovery::age;
-use super::recurrence::{Recurrence, Rest};
+use super::recurrence::{Mark, Recurrence, Rest};
 use crate::circuit::NetId;
 use crate::control::Control;
 use crate::instance::Instance;
@@ -393,8 +393,13 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
                 into.push((index, node.due - now, node.next.value()));
             }
         };
-        let value = |index: u32| nodes[index as usize].out.value();
+        let mark = |index: u32| nodes[index as usize].mark;
         let own = |index: u32| if P::ANEW { firing.own(index) } else { 0 };
-        self.recurrence.end_batch(now, &value, &pending, &own, &|index| NetId(plan.inputs + index));
+        self.recurrence.end_batch(now, &mark, &pending, &own, &|index| NetId(plan.inputs + index));
+        let nodes = &mut self.nodes;
+        self.recurrence.mark_anew(|index| {
+            let node = &mut nodes[index as usize];
+            node.mark = Mark::new(node.out);
+        });
     }
 }

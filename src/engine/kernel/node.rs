@@ -3,6 +3,7 @@
 use crate::engine::level::Level;
 use crate::engine::plan::{Fan, Kind, Plan};
 use crate::engine::queue::{NEVER, Nodes, fetch};
+use crate::engine::recurrence::Mark;
 use crate::logic::Value;
 
 /// A gate or a wire end. A gate has an event pending if `next != out` (one a node) or its list is not empty (many).
@@ -20,6 +21,7 @@ pub(super) struct Node<L: Level, T> {
     /// The value after all pending events.
     pub next: L,
     pub kind: Kind,
+    pub mark: Mark<L>,
     pub tag: T,
 }
 
@@ -35,6 +37,7 @@ impl<L: Level, T: Copy + Default> Node<L, T> {
             out: L::of(Value::Zero),
             next: L::of(Value::Zero),
             kind: plan.kind(node),
+            mark: Mark::new(L::of(Value::Zero)),
             tag: T::default(),
         }
     }

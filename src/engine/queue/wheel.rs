@@ -14,7 +14,7 @@ const FETCH_AHEAD: usize = 50_000;
 /// Buckets ahead at which nodes are fetched, what names their readers, and the readers.
 const AHEAD: [u64; 3] = [6, 4, 2];
 /// Nodes a bucket.
-const SHARE: usize = 16;
+const SHARE: usize = 64;
 /// Least and greatest number of buckets.
 const BUCKETS: [usize; 2] = [64, 1 << 16];
 /// Entries from which on the heap is rid of what is stale.
@@ -81,9 +81,10 @@ impl Wheel {
 
     /// The next tick for which the wheel holds something.
     fn next_tick(&self) -> Option<u64> {
-        let first = (self.tick + 1 & self.mask()) as usize;
+        let after = self.tick + 1;
+        let first = (after & self.mask()) as usize;
         let bucket = self.next_from(first).or_else(|| self.next_from(0))?;
-        Some(self.tick + 1 + (bucket as u64).wrapping_sub(self.tick + 1 & self.mask()) % self.buckets.len() as u64)
+        Some(after + ((bucket as u64).wrapping_sub(after) & self.mask()))
     }
 
     /// Nothing is due up to `until`: its tick is the one under way.
@@ -131,7 +132,7 @@ impl Wheel {
         self.current.sort_unstable_by_key(|entry| Reverse(entry.at));
         if self.fetches {
             for (stage, ahead) in AHEAD.iter().enumerate() {
-                for entry in &self.buckets[(tick + ahead & self.mask()) as usize] {
+                for entry in &self.buckets[((tick + ahead) & self.mask()) as usize] {
                     nodes.soon(entry.node, stage);
                 }
             }

@@ -18,7 +18,7 @@ pub(super) fn margins(paper: &mut Paper, scenario: &Scenario, asked: &Asked, pro
     if known.is_empty() {
         return;
     }
-    known.sort_by(|a, b| a.0.factor.cmp(&b.0.factor));
+    known.sort_by_key(|it| it.0.factor);
     paper.heading("Margins: how far all ranges may be stretched about typical, still proved");
     let mut table = Table::new().text("claim").number("factor", 0).text("");
     for (margin, claim) in known.iter().take(ROWS) {

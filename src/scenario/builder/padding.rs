@@ -13,7 +13,7 @@ pub(super) fn check(
     network: &Network<'_>,
 ) -> Option<Vec<Padded>> {
     let told = told?;
-    if let [] = told {
+    if told.is_empty() {
         return Some(Vec::new());
     }
     let mut all: Vec<(Padded, &Said<String>)> = Vec::new();
