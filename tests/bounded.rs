@@ -274,3 +274,12 @@ fn claims_of_the_selectors() {
     println!("{counts:?}");
     assert!(counts.keys().all(|(_, call)| *call == "proved"), "{counts:?}");
 }
+
+/// Clocks beside steps: nothing that a sweep meets is excluded by what is proved; what is refuted has its case.
+#[test]
+fn claims_with_clocks() {
+    let counts = claims("divider");
+    assert!(counts[&("glitch_free", "proved")] == 80 && counts[&("settle_within", "proved")] == 80, "{counts:?}");
+    let counts = claims("clock-switch");
+    assert_eq!(counts.get(&("min_pulse", "refuted")), Some(&1), "{counts:?}");
+}

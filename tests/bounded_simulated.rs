@@ -12,7 +12,7 @@ use stillgate::engine::End;
 use stillgate::instance::{Instance, Which};
 use stillgate::logic::{Bits, Value};
 use stillgate::proof::{Budget, Ended, Mode, Moves, NOWHERE, Plant, Settles, explore};
-use stillgate::scenario::{Place, Scenario};
+use stillgate::scenario::{Clock, Mark, Place, Scenario};
 use stillgate::time::Span;
 
 use crate::support::small_nets::SmallNet;
@@ -77,6 +77,34 @@ fn world(rng: &mut ChaCha8Rng) -> World {
     world
 }
 
+/// The same with two inputs, the first of which is driven by a clock of two or three periods with ranges and jitter.
+fn clocked(rng: &mut ChaCha8Rng) -> World {
+    let mut world = loop {
+        let world = world(rng);
+        if world.inputs.len() == 2 {
+            break world;
+        }
+    };
+    let mut value = world.inputs[1].1;
+    for (step, set) in world.steps.iter_mut().zip(&mut world.set) {
+        value = !value;
+        (*set, step.skew) = (vec![("i1".to_string(), value)], None);
+    }
+    let between = |rng: &mut ChaCha8Rng, least: u64, width: u64| {
+        DelayRange::between(fs(least), fs(least + rng.random_range(0..=width)))
+    };
+    let least = rng.random_range(1..=9);
+    let first = between(rng, least, 3);
+    let least = rng.random_range(4..=12);
+    let high = between(rng, least, 2);
+    let least = high.max.fs() + rng.random_range(4..=12);
+    let period = between(rng, least, 2);
+    let jitter = fs(rng.random_range(0..=1));
+    let clock = Clock { net: NetId(0), first, period, high, jitter, count: rng.random_range(2..=3), mark: Mark(0) };
+    world.clocks.push(("i0".into(), clock));
+    world
+}
+
 /// One case: everything from its range, evenly, from the corners, or from whole numbers three apart.
 fn drawn(scenario: &Scenario, rng: &mut ChaCha8Rng, fine: u64) -> Instance {
     let mut instance = Instance::of(scenario, &Which::Typ);
@@ -96,6 +124,12 @@ fn drawn(scenario: &Scenario, rng: &mut ChaCha8Rng, fine: u64) -> Instance {
     }
     for (to, from) in instance.delays.wire.iter_mut().zip(&scenario.delays.wire) {
         *to = [draw(from[0]), draw(from[1])];
+    }
+    for (case, clock) in instance.clocks.iter_mut().zip(&scenario.stimulus.clocks) {
+        (case.first, case.period, case.high) = (draw(clock.first), draw(clock.period), draw(clock.high));
+        let moves = DelayRange::between(fs(0), clock.jitter + clock.jitter);
+        let most = (clock.jitter.fs() * fine) as i64;
+        case.jitter.iter_mut().for_each(|moved| *moved = draw(moves).fs() as i64 - most);
     }
     for (s, step) in scenario.stimulus.steps.iter().enumerate() {
         instance.places[s] = match &step.place {
@@ -162,9 +196,12 @@ fn check(world: &World, rest: &Bits, rng: &mut ChaCha8Rng, met: &mut Met) -> Res
         let record = run(&scaled, rest, &instance);
         met.runs += 1;
         for window in &record.windows {
-            let steps = (scenario.stimulus.moments.iter())
-                .take(window.moment as usize + window.opening.moments.len())
-                .count() as u32;
+            let (first, together) = (window.moment + 1, window.opening.moments.len() as u32);
+            let steps = match (scenario.stimulus.clocks.is_empty(), together) {
+                (true, _) => window.moment + together,
+                (false, 1) => first,
+                (false, _) => plant.windows + first,
+            };
             if window.end != End::Settled {
                 continue;
             }
@@ -200,6 +237,10 @@ fn check(world: &World, rest: &Bits, rng: &mut ChaCha8Rng, met: &mut Met) -> Res
             for (gate, moves) in moves.iter().enumerate() {
                 let net = NetId((world.inputs.len() + gate) as u32);
                 let cone = scenario.circuit.cone(&[net]);
+                // a cone knows nothing of the windows of a clock outside it
+                if scenario.stimulus.clocks.iter().any(|clock| !cone.contains(clock.net)) {
+                    continue;
+                }
                 let Some(moves) =
                     moves.as_ref().filter(|_| window.opening.inputs.iter().any(|net| cone.contains(*net)))
                 else {
@@ -220,6 +261,27 @@ fn check(world: &World, rest: &Bits, rng: &mut ChaCha8Rng, met: &mut Met) -> Res
         }
     }
     Ok(())
+}
+
+/// Clocks with ranges and jitter, beside steps: at any time, after one another, after rest.
+#[test]
+fn every_clocked_run_lies_in_the_zones() {
+    let percent: u64 = std::env::var("STILLGATE_CASES").ok().and_then(|text| text.parse().ok()).unwrap_or(100);
+    let mut met = Met::default();
+    for stream in 0..60 * percent / 100 {
+        let mut rng = ChaCha8Rng::seed_from_u64(52);
+        rng.set_stream(stream);
+        let world = clocked(&mut rng);
+        let inputs: Vec<bool> = world.inputs.iter().map(|(_, bit)| *bit).collect();
+        for rest in stable_states(&world.scenario().circuit, &inputs).iter().take(1) {
+            if let Err(error) = check(&world, rest, &mut rng, &mut met) {
+                let start: Vec<bool> =
+                    (inputs.len()..inputs.len() + world.gates.len()).map(|net| rest.get(net)).collect();
+                panic!("seed 52, stream {stream}: {error}\n{}", written::scenario(&world, &start));
+            }
+        }
+    }
+    assert!(met.skipped * 2 < met.worlds && met.figures > met.worlds && met.moved > met.worlds, "{met:?}");
 }
 
 #[test]

@@ -196,3 +196,100 @@ fn refuted_cases_replay() {
     assert_eq!(files, [format!("refuted-{number}.toml")], "the number of its claim");
     assert_eq!(json["windows"][0]["settling"][1], 23);
 }
+
+/// What recurs before the next step comes is an oscillation, though it ends: the proof says so as the run does.
+#[test]
+fn a_ring_that_is_let_go_for_a_while() {
+    let ring = |steps: &str| {
+        format!(
+            "[inputs]\ngo = 0\n[gates]\na = {{ nand = [\"go\", \"c\"], delay = [2, 3] }}\nb = {{ not = [\"a\"], delay = [2, 3] }}\nc = {{ not = [\"b\"], delay = [2, 3] }}\n{steps}"
+        )
+    };
+    let timed = ring("[[steps]]\nat = 10\nset = { go = 1 }\n[[steps]]\nafter = 800\nset = { go = 0 }\n");
+    assert_eq!(call(&timed, "oscillation").0, Call::Refuted);
+    let clocked = ring("[[clocks]]\nnet = \"go\"\nfirst = 10\nperiod = 1600\nhigh = 800\ncount = 1\n");
+    assert_eq!(call(&clocked, "oscillation").0, Call::Refuted);
+}
+
+/// A clock of one period in ranges: bounds on times from edge to edge hold at the femtosecond and not beyond, jitter included.
+#[test]
+fn clocks_at_their_bounds() {
+    let clock = |rule: &str, jitter: &str| {
+        format!(
+            r#"
+[inputs]
+tick = 0
+[gates]
+y = {{ buf = ["tick"], rise = [2, 4], fall = [3, 6] }}
+[[clocks]]
+net = "tick"
+first = [10, 30]
+period = [98, 102]
+high = [40, 44]
+{jitter}
+count = 2
+[rules]
+{rule}
+"#
+        )
+    };
+    let high = |ns: &str, jitter: &str| {
+        call(&clock(&format!("min_pulse = {{ y = {{ high = {ns} }} }}"), jitter), "min_pulse").0
+    };
+    // 40 - 4 + 3
+    assert_eq!(high("39", ""), Call::Proved);
+    assert_eq!(high("39.000001", ""), Call::Refuted);
+    // and both edges nearer by 1
+    assert_eq!(high("37", "jitter = 1"), Call::Proved);
+    assert_eq!(high("37.000001", "jitter = 1"), Call::Refuted);
+    // from rise to rise: 98, and y's own rise does not vary from one to the next where delays are constant
+    let period = |ns: &str| {
+        let rule = format!("[[rules.timing]]\nfrom = \"tick rise\"\nto = \"tick rise\"\nmin = {ns}");
+        call(&clock(&rule, "jitter = 1"), "timing").0
+    };
+    assert_eq!(period("96"), Call::Proved);
+    assert_eq!(period("96.000001"), Call::Refuted);
+}
+
+/// An edge and a step that may cross: what the case shows is made of one period, one time high and one first edge.
+#[test]
+fn a_clock_and_a_step_that_may_cross() {
+    let gated = |at: &str| {
+        format!(
+            r#"
+outputs = ["out"]
+[inputs]
+open = 0
+tick = 0
+[gates]
+out = {{ and = ["open", "tick"], delay = [1, 2] }}
+[[steps]]
+at = {at}
+set = {{ open = 1 }}
+[[clocks]]
+net = "tick"
+first = [10, 12]
+period = [50, 51]
+high = [20, 21]
+count = 4
+[rules]
+glitch_free = []
+min_pulse = {{ out = {{ high = 15 }} }}
+"#
+        )
+    };
+    // the third pulse is from [110, 114] to [130, 135]
+    let cut = gated("[116, 120]");
+    assert_eq!(call(&cut, "min_pulse").0, Call::Refuted);
+    assert_eq!(call(&gated("[136, 150]"), "min_pulse").0, Call::Proved);
+    let (asked, proof) = proof(&cut, 20_000);
+    let claim = proof.claims.iter().find(|claim| claim.call == Call::Refuted).unwrap();
+    assert_eq!(asked.questions[claim.question as usize].rule.word(), "min_pulse");
+    let clock = &claim.witness.as_ref().unwrap().clocks[0];
+    let inside =
+        |span: stillgate::time::Span, ns: [u64; 2]| (ns[0] * 1_000_000..=ns[1] * 1_000_000).contains(&span.fs());
+    assert!(
+        inside(clock.first, [10, 12]) && inside(clock.period, [50, 51]) && inside(clock.high, [20, 21]),
+        "{clock:?}"
+    );
+}

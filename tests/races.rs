@@ -49,6 +49,10 @@ pub fn names(scenario: &Scenario, sum: &Sum) -> Vec<String> {
             format!("{}>{}{}", circuit.name(net), circuit.name(circuit.net_of(gate)), edges(of))
         }
         stillgate::proof::Quantity::Place(step) => format!("step {}", step + 1),
+        stillgate::proof::Quantity::First(clock) => format!("first {clock}"),
+        stillgate::proof::Quantity::Period(clock) => format!("period {clock}"),
+        stillgate::proof::Quantity::High(clock) => format!("high {clock}"),
+        stillgate::proof::Quantity::Jitter(clock, edge) => format!("jitter {clock} {edge}"),
         stillgate::proof::Quantity::Late(step, net) => format!("late {} {}", step + 1, circuit.name(net)),
     };
     let mut names: Vec<String> = sum.terms.iter().map(|(of, times)| name(*of).repeat(*times as usize)).collect();

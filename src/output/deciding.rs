@@ -24,11 +24,21 @@ pub(super) fn quantity(scenario: &Scenario, quantity: Quantity) -> String {
                 _ => format!("time of \"{}\"", step.label),
             }
         }
+        Quantity::First(clock) => format!("first edge of {}", clock_name(scenario, clock)),
+        Quantity::Period(clock) => format!("period of {}", clock_name(scenario, clock)),
+        Quantity::High(clock) => format!("time high of {}", clock_name(scenario, clock)),
+        Quantity::Jitter(clock, edge) => {
+            format!("edge {} of {} after its earliest", edge + 1, clock_name(scenario, clock))
+        }
         Quantity::Late(step, net) => {
             let label = &scenario.stimulus.steps[step as usize].label;
             format!("lateness of {} in \"{label}\"", words::net(scenario, net))
         }
     }
+}
+
+fn clock_name(scenario: &Scenario, clock: u32) -> &str {
+    words::net(scenario, scenario.stimulus.clocks[clock as usize].net)
 }
 
 fn wire_name(scenario: &Scenario, wire: crate::circuit::WireId) -> String {

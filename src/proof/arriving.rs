@@ -3,6 +3,7 @@
 use super::explore::Explorer;
 use super::explored::{Ended, Merge, Node, Rest};
 use super::key::{KeyMut, Mover};
+use super::outside;
 use super::passed::{Cell, Kept};
 use super::plant::PlantPlace;
 use super::semantics::Semantics;
@@ -17,6 +18,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         let info = &self.known.infos[number as usize];
         let key = self.found.key(number);
         let (state, rest, steps, row) = (key.watch(), info.rest, key.steps(), info.watch_row);
+        let (window, ended) = (key.window(), outside::ended(self.plant, key));
         let lasting = info.limits.iter().all(|(row, most)| self.entry.allows(*row, self.semantics.lasts(*most)));
         if lasting {
             let mut zone = &self.entry;
@@ -27,7 +29,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
                 }
                 zone = &self.lasting;
             }
-            let arrival = Arrival { plant: self.plant, values: key.values(), rest, steps, zone, row };
+            let arrival = Arrival { plant: self.plant, values: key.values(), rest, window, ended, zone, row };
             let hits = &mut self.hits;
             self.watch.arrive(state, &arrival, &mut |hit| hits.push(hit));
         }
@@ -35,12 +37,13 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             let (values, origin) = (key.values().to_vec(), key.origin());
             (values, origin)
         });
-        let rested =
-            rested.map(|(values, origin)| Rest { steps: steps as u32, origin, state: self.state_number(&values) });
+        let rested = rested.map(|(values, origin)| Rest { steps: window, origin, state: self.state_number(&values) });
 
         // time passes, but for a step that waits for rest
         let mut number = number;
-        let waits = rest && matches!(self.plant.steps.get(steps).map(|step| step.place), Some(PlantPlace::Rest(_)));
+        let waits = rest
+            && matches!(self.plant.steps.get(steps).map(|step| step.place), Some(PlantPlace::Rest(_)))
+            && self.found.key(number).clocks_over(self.plant);
         let mut goes_on = true;
         if !waits {
             let info = &self.known.infos[number as usize];

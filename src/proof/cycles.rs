@@ -24,7 +24,7 @@ pub enum RestVerdict {
 /// An oscillation.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Cycle {
-    /// Steps taken; 0 in the power-up window.
+    /// The window, as in [`Rest`](super::Rest): steps taken, 0 in the power-up window.
     pub steps: u32,
     /// Does it need several things at exactly one instant, so that no design is meant to show it? `None`: not decided.
     pub needs_ties: Option<bool>,
@@ -139,7 +139,7 @@ fn first_cycles(plant: &Plant, found: &Explored, leads: &[Vec<u32>], lasting: &[
         // else it runs into a cycle that is known
         let Some(place) = path.iter().position(|it| *it == at) else { continue };
         let round = &path[place..];
-        let steps = found.steps(at) as u32;
+        let steps = found.window(at);
         if cycles.iter().any(|cycle| cycle.steps == steps) {
             continue;
         }

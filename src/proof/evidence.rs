@@ -52,6 +52,10 @@ pub(super) fn quantities(plant: &Plant, system: &System) -> Vec<Quantity> {
         Unknown::Gate(gate, _) => Quantity::Gate(plant.gates[gate as usize].gate, *edges),
         Unknown::Wire(wire, _) => Quantity::Wire(plant.wires[wire as usize].wire, *edges),
         Unknown::Place(step) => Quantity::Place(step),
+        Unknown::First(clock) => Quantity::First(plant.clocks[clock as usize].clock),
+        Unknown::Period(clock) => Quantity::Period(plant.clocks[clock as usize].clock),
+        Unknown::High(clock) => Quantity::High(plant.clocks[clock as usize].clock),
+        Unknown::Jitter(clock, edge) => Quantity::Jitter(plant.clocks[clock as usize].clock, edge),
         Unknown::Late(step, entry) => {
             let (net, _) = plant.steps[step as usize].set[entry as usize];
             Quantity::Late(step, plant.nets[net as usize])

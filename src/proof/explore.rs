@@ -12,6 +12,7 @@ use rustc_hash::FxHashMap;
 use super::explored::{Budget, Ended, Explored, Mode, NOWHERE, Node};
 use super::key::{self, Agent, KeyMut, Layout, put};
 use super::known::Known;
+use super::outside;
 use super::passed::{Bounds, Cell};
 use super::plant::{Plant, PlantPlace};
 use super::semantics::{Exact, Semantics};
@@ -98,6 +99,7 @@ pub(super) struct Explorer<'a, W, S, C> {
     pub cooling: Vec<u32>,
     pub from: Vec<usize>,
     pub disabled: Vec<(u32, usize)>,
+    pub opens: Vec<u32>,
     pub hits: Vec<u32>,
 }
 
@@ -130,6 +132,7 @@ impl<'a, W: Watch, S: Semantics, C: Cell> Explorer<'a, W, S, C> {
             cooling: Vec::new(),
             from: Vec::new(),
             disabled: Vec::new(),
+            opens: Vec::new(),
             hits: Vec::new(),
         }
     }
@@ -156,6 +159,11 @@ impl<'a, W: Watch, S: Semantics, C: Cell> Explorer<'a, W, S, C> {
         self.entry = Matrix::zero(self.known.infos[number as usize].slots.len());
         self.hits.clear();
         self.arrive(number, u32::MAX, &[]);
+        if self.plant.ends && !outside::ended(self.plant, self.found.key(number)) {
+            let number = self.at_end(number);
+            self.entry = Matrix::zero(self.known.infos[number as usize].slots.len());
+            self.arrive(number, u32::MAX, &[]);
+        }
     }
 
     /// The number of the key in `words`, with the gates in `excited`.
@@ -166,6 +174,17 @@ impl<'a, W: Watch, S: Semantics, C: Cell> Explorer<'a, W, S, C> {
             self.end(Ended::Together);
         }
         number
+    }
+
+    /// The key with nothing to come from outside.
+    pub fn at_end(&mut self, number: u32) -> u32 {
+        self.words.copy_from_slice(self.found.key(number).words);
+        let origin = self.found.key(number).origin();
+        self.excited.clone_from(&self.known.infos[number as usize].excited);
+        let mut key = KeyMut { words: &mut self.words, layout: self.layout };
+        key.set_step(self.plant.steps.len(), origin);
+        self.plant.clocks.iter().enumerate().for_each(|(c, clock)| key.set_edges(c, clock.edges));
+        self.intern()
     }
 
     /// Ends the exploration, unless something else has.
@@ -205,7 +224,10 @@ impl<'a, W: Watch, S: Semantics, C: Cell> Explorer<'a, W, S, C> {
         }
         let info = &self.known.infos[key as usize];
         self.kept.load(at, info.slots.len() + 1, &mut self.base);
-        if info.rest && matches!(self.next_place(key), Some(PlantPlace::Rest(_))) {
+        if info.rest
+            && matches!(self.next_place(key), Some(PlantPlace::Rest(_)))
+            && self.found.key(key).clocks_over(self.plant)
+        {
             self.try_fire(node, &[]);
             return;
         }

@@ -89,7 +89,8 @@ pub(super) struct Node {
 /// A state at rest, and the first node that led to it.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub struct Rest {
-    /// Steps taken.
+    /// The window: steps taken. With clocks the number of the step that began it, from 1, or behind those of all steps that of the
+    /// edge, in the order of the scenario's moments; where several came at once that of the first, and [`Plant::windows`] more.
     pub steps: u32,
     /// The state at rest in which its window began (with the last step that changed an input here), by number; [`NOWHERE`]
     /// if it did not begin at rest.
@@ -183,9 +184,9 @@ impl Explored {
         self.key(self.nodes[node as usize].key).values().to_vec()
     }
 
-    /// Steps taken at a node.
-    pub(super) fn steps(&self, node: u32) -> usize {
-        self.key(self.nodes[node as usize].key).steps()
+    /// The window at a node.
+    pub(super) fn window(&self, node: u32) -> u32 {
+        self.key(self.nodes[node as usize].key).window()
     }
 
     /// The values of the signals where a trace begins.

@@ -3,6 +3,7 @@
 use super::explore::Explorer;
 use super::explored::{Ended, NOWHERE};
 use super::key::{self, Agent, Key, KeyMut, Mover, Slot, bit, put};
+use super::outside;
 use super::passed::Cell;
 use super::plant::{Plant, PlantPlace};
 use super::semantics::Semantics;
@@ -18,11 +19,23 @@ struct Firing<'m> {
     steps: usize,
     /// Steps that are part of it.
     stepping: usize,
+    /// Clocks of which an edge is part of it, a bit a clock.
+    edges: u32,
 }
 
 impl Firing<'_> {
     fn has(&self, mover: Mover) -> bool {
         self.movers.contains(&mover)
+    }
+
+    /// Does it begin a window?
+    fn opens(&self) -> bool {
+        self.stepping > 0 || self.edges != 0
+    }
+
+    /// Is what comes from outside as this agent part of it, or was it to come in its place?
+    fn replaces(&self, agent: &Agent) -> bool {
+        self.stepping > 0 && agent.steps > 0 || self.edges & agent.edges != 0
     }
 
     /// How many of the changes under way on a wire are overtaken.
@@ -44,11 +57,19 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
     /// Fires movers together out of the zone in `base`; `words` has the values after it.
     pub fn fire_so(&mut self, node: u32, agents: &[Agent], movers: &[Mover], stepping: usize) {
         let key = self.found.nodes[node as usize].key;
-        let firing = Firing { key, movers, steps: self.found.key(key).steps(), stepping };
+        let edges = movers.iter().fold(0, |all, mover| if let Mover::Edge(c) = mover { all | 1 << c } else { all });
+        let firing = Firing { key, movers, steps: self.found.key(key).steps(), stepping, edges };
         self.work.load(self.base.size, &self.base.bounds);
         if self.is_due(&firing, agents) && self.set_out(&firing) && self.excite(&firing) && self.is_cool(&firing) {
             self.cool(&firing);
             let (number, fates) = self.next_key(&firing);
+            let moves = firing.opens() || movers.iter().any(|mover| matches!(mover, Mover::Late(_)));
+            let next = self.found.key(number);
+            if self.plant.ends && moves && next.skew() == 0 && !outside::ended(self.plant, next) {
+                let last = self.at_end(number);
+                self.next_clocks(&firing, last, fates);
+                self.arrive(last, node, movers);
+            }
             self.next_clocks(&firing, number, fates);
             self.arrive(number, node, movers);
         }
@@ -76,16 +97,29 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             if !able || apart > 0 && !self.work.bound(0, apart, self.semantics.later()) {
                 return false;
             }
+            for clock in outside::numbers(agent.edges) {
+                let key = self.found.key(firing.key);
+                for (row, ticks) in outside::measures(plant, key, info, clock).into_iter().flatten() {
+                    if !self.work.at_least(row, self.semantics.due(ticks.min)) {
+                        return false;
+                    }
+                }
+            }
         }
-        if firing.stepping > 0 {
+        if firing.opens() {
             // those of one instant come together, and before everything else
+            let key = self.found.key(firing.key);
             let fired = info.row(Slot::Fired);
             let since = if steps > 0 { info.row(Slot::Since) } else { 0 };
-            for row in [fired, since] {
+            let came = (0..plant.clocks.len()).filter(|c| key.edges(*c) > 0);
+            let edges = came.map(|c| info.row(Slot::Edge(c as u32)));
+            for row in [fired, since].into_iter().chain(edges) {
                 if row > 0 && !self.work.bound(0, row, self.semantics.later()) {
                     return false;
                 }
             }
+        }
+        if firing.stepping > 0 {
             let start = info.row(Slot::Start);
             for other in &plant.steps[steps + 1..steps + firing.stepping] {
                 if let PlantPlace::At(ticks) = other.place
@@ -200,10 +234,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         let key = self.found.key(firing.key);
         let reads = |signal: u32| plant.gates[gate as usize].reads.iter().any(|read| read.0 == signal);
         self.known.infos[firing.key as usize].agents.iter().any(|agent| {
-            let gone = match agent.mover {
-                Mover::Step(_) => firing.stepping > 0,
-                mover => firing.has(mover),
-            };
+            let gone = if agent.opens() { firing.replaces(agent) } else { firing.has(agent.mover) };
             !gone
                 && self.work.may_reach(agent.row, agent.min)
                 && match agent.mover {
@@ -212,10 +243,12 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
                     }
                     Mover::Arrival(wire) => reads((plant.nets.len() + wire as usize) as u32),
                     Mover::Overtaking(..) => false,
+                    Mover::Edge(_) => outside::numbers(agent.edges).any(|c| reads(plant.clocks[c].net)),
                     Mover::Step(_) => {
+                        let edges = outside::numbers(agent.edges).any(|c| reads(plant.clocks[c].net));
                         let all = &plant.steps[steps..steps + agent.steps as usize];
                         let late = plant.steps[..steps].last().filter(|_| key.skew() != 0);
-                        all.iter().chain(late).any(|step| step.set.iter().any(|(net, _)| reads(*net)))
+                        edges || all.iter().chain(late).any(|step| step.set.iter().any(|(net, _)| reads(*net)))
                     }
                     Mover::Late(entry) => reads(plant.steps[steps - 1].set[entry as usize].0),
                 }
@@ -250,15 +283,26 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         let info = &self.known.infos[firing.key as usize];
         let key = self.found.key(firing.key);
         let step = firing.stepping > 0;
-        // a step that is due comes before what fires at its instant
-        let due = |agent: &Agent| matches!(agent.mover, Mover::Step(_)) && self.work.may_reach(agent.row, agent.min);
-        let fired = !step && info.agents.iter().any(due);
+        // a step or edge that is due comes before what fires at its instant, or together with others
+        let due = |agent: &Agent| agent.opens() && !firing.replaces(agent) && self.work.may_reach(agent.row, agent.min);
+        let fired = info.agents.iter().any(due);
+        self.opens.clear();
+        self.opens.extend((firing.steps..firing.steps + firing.stepping).map(|step| step as u32 + 1));
+        self.opens.extend(outside::numbers(firing.edges).map(|c| plant.clocks[c].base + key.edges(c)));
+        let window = match self.opens.as_slice() {
+            [] => key.window(),
+            [.., last] if plant.clocks.is_empty() => *last,
+            [one] => *one,
+            [first, ..] => plant.windows + first,
+        };
+        let edges: Vec<(usize, u32)> = outside::numbers(firing.edges).map(|c| (c, key.edges(c) + 1)).collect();
         let block = Block {
             plant,
             before: key.values(),
             after: &self.words[..layout.values],
             step: step.then_some(firing.steps),
             steps: firing.stepping,
+            opens: &self.opens,
             rested: info.rest,
             late: firing.movers.iter().any(|mover| matches!(mover, Mover::Late(_))),
             disabled: &self.disabled,
@@ -280,6 +324,8 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         let mut next = KeyMut { words: &mut self.words, layout };
         next.set_step(firing.steps + firing.stepping, origin);
         next.set_watch(state, fired);
+        next.set_window(window);
+        edges.into_iter().for_each(|(clock, edges)| next.set_edges(clock, edges));
         (self.intern(), fates)
     }
 
@@ -298,6 +344,9 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
                     (first + place < end).then_some(Slot::Flight(wire, first + place))
                 }
                 Slot::Since if firing.stepping > 0 => None,
+                Slot::Edge(clock) if firing.edges >> clock & 1 == 1 => None,
+                // the edge that was the last is the one before it now
+                Slot::Cycle(clock) if firing.edges >> clock & 1 == 1 => Some(Slot::Edge(clock)),
                 Slot::Fired => None,
                 Slot::Apart(wire) if firing.has(Mover::Arrival(wire)) => None,
                 Slot::Cool(gate) if self.cooling.contains(&gate) => None,

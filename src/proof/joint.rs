@@ -11,6 +11,7 @@ use std::rc::Rc;
 use rustc_hash::{FxHashMap, FxHashSet};
 
 use super::key::{Agent, Info, Key, Mover, bit, excited, put};
+use super::outside;
 use super::plant::Plant;
 
 /// Movers of one set, at most.
@@ -49,9 +50,9 @@ impl Joint {
             info.near = near(plant, info, key);
         }
         // steps come with or without others at their instant, and with all inputs that are late
-        let of = |is: fn(&Mover) -> bool| {
+        let of = |is: fn(&Agent) -> bool| {
             let all = info.agents.iter().enumerate();
-            all.filter(|(_, agent)| is(&agent.mover)).fold(0u64, |all, (i, _)| all | 1 << i)
+            all.filter(|(_, agent)| is(agent)).fold(0u64, |all, (i, _)| all | 1 << i)
         };
         if self.victims.is_empty() {
             self.victims = (0..info.agents.len()).map(|i| victims(plant, key, info, i)).collect();
@@ -59,12 +60,13 @@ impl Joint {
         let harmless = |mask: u64| {
             (0..64).filter(|i| mask >> i & 1 == 1 && self.victims[*i] == 0).fold(0u64, |all, i| all | 1 << i)
         };
-        let steps = of(|mover| matches!(mover, Mover::Step(_)));
+        let steps = of(|agent| agent.opens());
+        let stepping_late = of(|agent| agent.steps > 0);
         let skewed = steps != 0 && plant.steps[key.steps()..].iter().any(|step| step.skew > 0);
         // a step that disables nothing goes first; beside one that does all others may matter
         let stepping = enabled & steps & !if skewed { 0 } else { harmless(enabled & steps) };
         let alone = enabled & !steps & !harmless(enabled & !steps);
-        let late = of(|mover| matches!(mover, Mover::Late(_)));
+        let late = of(|agent| matches!(agent.mover, Mover::Late(_)));
         let mut complete = true;
         let first = |mask: u64| (0..info.agents.len()).filter(move |i| mask >> i & 1 == 1).map(|i| 1u64 << i);
         let mut open: Vec<u64> = first(alone).chain(first(stepping)).collect();
@@ -81,7 +83,7 @@ impl Joint {
             while next != 0 {
                 let grown = set | 1 << next.trailing_zeros();
                 next &= next - 1;
-                if grown & steps != 0 && grown & late != 0 {
+                if grown & stepping_late != 0 && grown & late != 0 {
                     continue;
                 }
                 if !seen.insert(grown) {
@@ -107,14 +109,16 @@ fn signals(plant: &Plant, key: Key<'_>, agent: &Agent) -> Vec<(u32, bool)> {
         Mover::Gate(gate) => flipped(plant.inputs + gate as usize),
         Mover::Arrival(wire) => flipped(plant.nets.len() + wire as usize),
         Mover::Overtaking(..) => Vec::new(),
-        Mover::Step(_) => {
+        Mover::Step(_) | Mover::Edge(_) => {
             let taken = key.steps();
-            let late = plant.steps[..taken].last().filter(|_| key.skew() != 0);
+            let edges = outside::numbers(agent.edges).flat_map(|clock| flipped(plant.clocks[clock].net as usize));
+            let late = plant.steps[..taken].last().filter(|_| key.skew() != 0 && agent.steps > 0);
             let late = late.into_iter().flat_map(|step| step.set.iter().enumerate());
             let late = late.filter(|(entry, _)| key.skew() >> entry & 1 == 1).map(|(_, set)| *set);
             late.chain(
                 plant.steps[taken..taken + agent.steps as usize].iter().flat_map(|step| step.set.iter().copied()),
             )
+            .chain(edges)
             .collect()
         }
         Mover::Late(entry) => vec![plant.steps[key.steps() - 1].set[entry as usize]],
@@ -187,7 +191,7 @@ fn is_irreducible(plant: &Plant, key: Key<'_>, info: &Info, set: u64, victims: &
             _ => None,
         })
     };
-    let step = (0..info.agents.len()).filter(|i| matches!(info.agents[*i].mover, Mover::Step(_)));
+    let step = (0..info.agents.len()).filter(|i| info.agents[*i].opens());
     let step = step.fold(0u64, |all, i| all | 1 << i) & set;
     // with skew, a part of the inputs may change: all such sets are tried
     let skewed = |agent: &Agent| plant.steps[key.steps()..][..agent.steps as usize].iter().any(|step| step.skew > 0);

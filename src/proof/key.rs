@@ -1,5 +1,6 @@
 //! The discrete part of an explored state, as words: values, step, what is on its way, what a watch remembers.
 
+use super::outside;
 use super::passed;
 use super::plant::{Plant, PlantPlace, Ticks};
 use super::zone::{self, Code};
@@ -19,6 +20,8 @@ pub(super) struct Layout {
     flights: usize,
     /// First word of the gates that cool, a bit a gate.
     cool: usize,
+    /// First word of the clocks, where there are any: the window, then the number of edges of each that have come.
+    clocks: Option<usize>,
     /// Words in all.
     pub len: usize,
 }
@@ -35,6 +38,8 @@ impl Layout {
         let values = plant.signals().div_ceil(64).max(1);
         let flights = values + 3;
         let cool = flights + plant.wires.len().div_ceil(8);
+        let end = cool + plant.gates.len().div_ceil(64);
+        let clocks = (plant.ends || !plant.clocks.is_empty()).then_some(end);
         Layout {
             values,
             step: values,
@@ -42,7 +47,8 @@ impl Layout {
             skew: values + 2,
             flights,
             cool,
-            len: cool + plant.gates.len().div_ceil(64),
+            clocks,
+            len: end + clocks.map_or(0, |_| 1 + plant.clocks.len()),
         }
     }
 }
@@ -122,7 +128,26 @@ impl<'a> Key<'a> {
 
     #[inline]
     pub fn any_cools(&self) -> bool {
-        self.words[self.layout.cool..self.layout.len].iter().any(|word| *word != 0)
+        let end = self.layout.clocks.unwrap_or(self.layout.len);
+        self.words[self.layout.cool..end].iter().any(|word| *word != 0)
+    }
+
+    /// The window: the number of the step that began it, from 1, or of the edge (see [`PlantClock`]), 0 before the first.
+    /// Where several began it, the first of them and the number of all windows.
+    #[inline]
+    pub fn window(&self) -> u32 {
+        self.layout.clocks.map_or(self.steps() as u32, |at| self.words[at] as u32)
+    }
+
+    /// Edges of a clock that have come.
+    pub fn edges(&self, clock: usize) -> u32 {
+        self.layout.clocks.map_or(0, |at| self.words[at + 1 + clock] as u32)
+    }
+
+    /// Have all clocks ended?
+    #[inline]
+    pub fn clocks_over(&self, plant: &Plant) -> bool {
+        plant.clocks.iter().enumerate().all(|(c, clock)| self.edges(c) == clock.edges)
     }
 }
 
@@ -155,6 +180,20 @@ impl KeyMut<'_> {
         self.words[at] = self.words[at] & !(0xFF << shift) | u64::from(byte) << shift;
     }
 
+    /// Sets the window, where there are clocks.
+    pub fn set_window(&mut self, window: u32) {
+        if let Some(at) = self.layout.clocks {
+            self.words[at] = u64::from(window);
+        }
+    }
+
+    /// Sets the number of edges of a clock that have come.
+    pub fn set_edges(&mut self, clock: usize, edges: u32) {
+        if let Some(at) = self.layout.clocks {
+            self.words[at + 1 + clock] = u64::from(edges);
+        }
+    }
+
     #[inline]
     pub fn set_cools(&mut self, gate: usize, cools: bool) {
         put(&mut self.words[self.layout.cool..], gate, cools);
@@ -172,6 +211,10 @@ pub(super) enum Slot {
     Since,
     /// Time since the start.
     Start,
+    /// Time since the last edge of a clock; since the start before the first.
+    Edge(u32),
+    /// Time since the edge before that.
+    Cycle(u32),
     /// Time since something last fired.
     Fired,
     /// Time since a gate was disabled that could be excited again at once.
@@ -194,6 +237,8 @@ pub enum Mover {
     Overtaking(u32, u8),
     /// The next step comes; of the inputs that it sets, those of this mask (a bit an entry) change at once.
     Step(u64),
+    /// The next edge of a clock (by its number in the plant) comes.
+    Edge(u32),
     /// An input that the last step sets (entry of its set) changes, later than the step.
     Late(u32),
 }
@@ -207,6 +252,16 @@ pub(super) struct Agent {
     pub min: i64,
     /// For a step: how many steps come at its instant, itself counted.
     pub steps: u8,
+    /// The clocks of which an edge comes at its instant, a bit a clock.
+    pub edges: u32,
+}
+
+impl Agent {
+    /// Does it come from outside, and begin a window?
+    #[inline]
+    pub fn opens(&self) -> bool {
+        self.steps > 0 || self.edges != 0
+    }
 }
 
 /// What follows from a key alone.
@@ -299,7 +354,7 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
             let delay = plant.gates[gate].delay[usize::from(!bit(values, plant.inputs + gate))];
             info.slots.push(Slot::Gate(gate as u32));
             let mover = Mover::Gate(gate as u32);
-            info.agents.push(Agent { mover, row: info.slots.len(), min: delay.min, steps: 0 });
+            info.agents.push(Agent { mover, row: info.slots.len(), min: delay.min, steps: 0, edges: 0 });
             info.limits.push((info.slots.len(), zone::at_most(delay.max)));
         }
     }
@@ -309,7 +364,7 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
             info.slots.push(Slot::Flight(w as u32, place));
             let row = info.slots.len();
             if place == 0 {
-                info.agents.push(Agent { mover: Mover::Arrival(w as u32), row, min: delay.min, steps: 0 });
+                info.agents.push(Agent { mover: Mover::Arrival(w as u32), row, min: delay.min, steps: 0, edges: 0 });
                 info.limits.push((row, zone::at_most(delay.max)));
             } else {
                 // those before it come first
@@ -331,7 +386,7 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
         info.limits.push((since, zone::at_most(last.skew)));
         for entry in 0..last.set.len() as u32 {
             if key.skew() >> entry & 1 == 1 {
-                info.agents.push(Agent { mover: Mover::Late(entry), row: since, min: 0, steps: 0 });
+                info.agents.push(Agent { mover: Mover::Late(entry), row: since, min: 0, steps: 0, edges: 0 });
             }
         }
     }
@@ -355,9 +410,12 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
         }
         if !skewed || touching {
             for steps in plant.at_once(taken) {
-                info.agents.push(Agent { mover: Mover::Step(u64::MAX), row, min: ticks.min, steps });
+                info.agents.push(Agent { mover: Mover::Step(u64::MAX), row, min: ticks.min, steps, edges: 0 });
             }
         }
+    }
+    if !plant.clocks.is_empty() {
+        outside::clocks(plant, key, &mut info);
     }
     if key.fired() {
         info.slots.push(Slot::Fired);

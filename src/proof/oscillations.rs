@@ -39,7 +39,9 @@ impl Prover<'_> {
     pub(super) fn oscillation(&mut self, questions: &[u32]) -> Result<(), Unsaid> {
         let mut worst: BTreeMap<u32, Claim> = BTreeMap::new();
         for nets in self.parts() {
-            let world = self.world(&nets, &[])?;
+            let mut world = self.world(&nets, &[])?;
+            // what recurs before the next step is told as well
+            world.plant.ends = world.plant.is_timed();
             let cycles = match self.comes_to_rest(&world) {
                 RestVerdict::Always => Vec::new(),
                 RestVerdict::Cycles(cycles) => cycles,

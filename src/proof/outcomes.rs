@@ -7,6 +7,7 @@ use super::evidence::{Least, Trail};
 use super::explored::{Explored, Fired, Mode, NOWHERE, Rest};
 use super::goals::Goal;
 use super::key::bit;
+use super::outside::Stretch;
 use super::prove::{Prover, Unsaid, World, reached};
 use super::race::Race;
 use super::ratio::Ratio;
@@ -47,7 +48,7 @@ type Followed = BTreeMap<Box<[u64]>, BTreeMap<Box<[u64]>, u32>>;
 
 impl Part {
     /// The states at rest of a window, by the state that it began in.
-    fn outcomes(&self, found: &Explored, steps: &std::ops::Range<u32>) -> Followed {
+    fn outcomes(&self, found: &Explored, steps: &Stretch) -> Followed {
         let mut all: Followed = BTreeMap::new();
         let these = found.rests.iter().filter(|(rest, _)| steps.contains(&rest.steps) && rest.origin != NOWHERE);
         for (rest, node) in these {
@@ -266,7 +267,7 @@ impl Prover<'_> {
         for nets in self.parts() {
             let world = self.world(&nets, &[])?;
             let from = self.proof.claims.len();
-            let early = |_: &Question, steps: std::ops::Range<u32>, hit: u32| steps.start == hit;
+            let early = |_: &Question, steps: &Stretch, hit: u32| steps.start == hit;
             self.by_window(&world, &BeforeRest, questions, &early, &reached)?;
             for claim in self.proof.claims.drain(from..) {
                 let question = claim.question;

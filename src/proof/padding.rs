@@ -233,7 +233,12 @@ fn factors(trail: &Trail, terms: &[(usize, i128)], places: &[Padded]) -> Vec<(us
         let place = match trail.quantities[*unknown] {
             Quantity::Gate(gate, _) => Padded::Gate(gate),
             Quantity::Wire(wire, _) => Padded::Wire(wire),
-            Quantity::Place(_) | Quantity::Late(..) => continue,
+            Quantity::Place(_)
+            | Quantity::Late(..)
+            | Quantity::First(_)
+            | Quantity::Period(_)
+            | Quantity::High(_)
+            | Quantity::Jitter(..) => continue,
         };
         if let Ok(at) = places.binary_search(&place) {
             *sums.entry(at).or_default() += factor;

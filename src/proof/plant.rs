@@ -4,13 +4,17 @@
 
 use rustc_hash::FxHashMap;
 
+use super::outside::PlantClock;
 use crate::circuit::{Compiled, GateId, NetId, NetSet, WireId};
 use crate::delay::{DelayRange, Filter};
-use crate::scenario::{Place, Scenario};
+use crate::scenario::{Clock, Place, Scenario};
 use crate::time::Span;
 
 /// Inputs of one step with skew, at most: any part of them may change first.
 const SKEWED: usize = 6;
+
+/// Clocks of one cone, at most: edges of any of them may come at one instant.
+const CLOCKS: usize = 4;
 
 /// Why an exploration cannot speak of a part of a scenario.
 #[derive(Clone, Debug, PartialEq, Eq, thiserror::Error)]
@@ -18,9 +22,9 @@ pub enum NotCovered {
     /// A gate that is not inertial.
     #[error("the proof knows inertial gates only, and {0} is none")]
     Filter(String),
-    /// Clocks.
-    #[error("the proof does not know clocks yet: {0}")]
-    Clock(String),
+    /// More clocks in one cone than an exploration tells apart.
+    #[error("more than 4 clocks have to do with it, and the proof tells no more apart")]
+    Clocks,
     /// A step that bounces.
     #[error("the proof does not know contact bounce: step \"{0}\"")]
     Bounce(String),
@@ -118,6 +122,12 @@ pub struct Plant {
     pub leads: Vec<Vec<u32>>,
     /// The steps, all of them, in order.
     pub steps: Vec<PlantStep>,
+    /// The clocks that drive inputs here.
+    pub clocks: Vec<PlantClock>,
+    /// How many windows the scenario can have: moments, and what comes before the first.
+    pub windows: u32,
+    /// May what comes from outside end after each of its events? Then whatever recurs in a window can go on for ever.
+    pub ends: bool,
     /// Values of the inputs before the first step.
     pub initial: Vec<bool>,
     /// Is there a window from the start on, since it does not begin at rest?
@@ -143,10 +153,6 @@ impl Plant {
         if scenario.begin == crate::scenario::Begin::Unknown {
             return Err(NotCovered::UnknownStart);
         }
-        if let Some(clock) = stimulus.clocks.first() {
-            return Err(NotCovered::Clock(circuit.name(clock.net).to_string()));
-        }
-
         let mut times: Vec<Span> = spans.to_vec();
         let mut add = |range: DelayRange| times.extend([range.min, range.max]);
         let gates_of: Vec<GateId> = nets[inputs..].iter().filter_map(|net| circuit.driver(*net)).collect();
@@ -177,9 +183,20 @@ impl Plant {
                 add(skew);
             }
         }
+        let clocks: Vec<(usize, &Clock)> =
+            stimulus.clocks.iter().enumerate().filter(|(_, clock)| cone.contains(clock.net)).collect();
+        if clocks.len() > CLOCKS {
+            return Err(NotCovered::Clocks);
+        }
+        for (_, clock) in &clocks {
+            [clock.first, clock.period, clock.high].into_iter().for_each(&mut add);
+            add(DelayRange::exact(clock.jitter));
+        }
         let tick = times.iter().fold(0, |tick, span| common(tick, span.fs())).max(1);
         // every bound that can arise is a sum of some of these
         let sum = times.iter().map(|span| u128::from(span.fs() / tick)).sum::<u128>();
+        let cycles = |clock: &Clock| u128::from(clock.count) * u128::from(clock.period.max.fs() / tick);
+        let sum = sum + clocks.iter().map(|(_, clock)| cycles(clock)).sum::<u128>();
         if sum * 8 >= 1 << 60 {
             return Err(NotCovered::TooLong);
         }
@@ -225,6 +242,13 @@ impl Plant {
             others: step.set.iter().any(|(net, _)| !local.contains_key(net)),
         });
         let steps = steps.collect();
+        let edges = |clocks: &[Clock]| clocks.iter().map(|clock| 2 * clock.count).sum::<u32>();
+        let clocks = clocks.into_iter().map(|(number, clock)| {
+            let base = stimulus.steps.len() as u32 + 1 + edges(&stimulus.clocks[..number]);
+            let initial = stimulus.initial[clock.net.index()];
+            PlantClock::of(clock, number as u32, local[&clock.net], initial, base, &ticks)
+        });
+        let clocks = clocks.collect();
         let initial = nets[..inputs].iter().map(|net| stimulus.initial[net.index()]).collect();
         Ok(Plant {
             tick,
@@ -235,6 +259,9 @@ impl Plant {
             readers,
             leads,
             steps,
+            clocks,
+            windows: stimulus.steps.len() as u32 + 1 + edges(&stimulus.clocks),
+            ends: false,
             initial,
             power_up: scenario.begin_window().is_some(),
         })
@@ -273,6 +300,11 @@ impl Plant {
             (PlantPlace::At(at), PlantPlace::At(before)) => at.min <= before.max,
             (PlantPlace::At(_), _) => true,
         }
+    }
+
+    /// Does anything come from outside whose time is not counted from rest?
+    pub(super) fn is_timed(&self) -> bool {
+        !self.clocks.is_empty() || self.steps.iter().any(|step| !matches!(step.place, PlantPlace::Rest(_)))
     }
 
     /// Number of signals: nets and wire ends.

@@ -16,6 +16,7 @@ use super::explored::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE};
 use super::goals::Goal;
 use super::grouped::grouped;
 use super::key::bit;
+use super::outside::Stretch;
 use super::plant::Plant;
 use super::system::{Points, Sense, System};
 use super::watch::{Nothing, Watch};
@@ -26,7 +27,7 @@ use crate::control::Control;
 use crate::engine::{Program, Trace};
 use crate::findings::{Answers, Asked, Judge, Pattern, Question, RuleKey};
 use crate::instance::{Instance, Which};
-use crate::scenario::{Alternative, MomentKind, Scenario};
+use crate::scenario::{Alternative, Scenario};
 use crate::time::Span;
 
 /// Gates of a cone that may begin at random, at most: every start is explored.
@@ -437,14 +438,13 @@ impl<'a> Prover<'a> {
         world: &World,
         watch: &W,
         questions: &[u32],
-        breaks: &dyn Fn(&Question, std::ops::Range<u32>, u32) -> bool,
+        breaks: &dyn Fn(&Question, &Stretch, u32) -> bool,
         goal: &dyn Fn(&Plant, &Question) -> Goal,
     ) -> Result<(), Unsaid> {
-        let ranges: Vec<(u32, std::ops::Range<u32>)> =
+        let ranges: Vec<(u32, Stretch)> =
             questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
         let asked = self.asked;
-        let wanted =
-            |hit: u32| ranges.iter().any(|(q, steps)| breaks(&asked.questions[*q as usize], steps.clone(), hit));
+        let wanted = |hit: u32| ranges.iter().any(|(q, steps)| breaks(&asked.questions[*q as usize], steps, hit));
         match self.look(world, watch, &wanted)? {
             Looked::Never => {
                 for question in questions {
@@ -456,7 +456,7 @@ impl<'a> Prover<'a> {
                     let ask = &asked.questions[*question as usize];
                     let of: Vec<(u32, bool)> = hits
                         .iter()
-                        .filter(|(hit, _)| breaks(ask, steps.clone(), **hit))
+                        .filter(|(hit, _)| breaks(ask, steps, **hit))
                         .map(|(hit, node)| (*node, ties[hit]))
                         .collect();
                     match of.is_empty() {
@@ -474,23 +474,12 @@ impl<'a> Prover<'a> {
         Ok(())
     }
 
-    /// The numbers of steps taken in the window of a question: from its step to the next that surely begins another, since it
-    /// changes an input of the plant and cannot come at the instant of the one before it.
-    pub(super) fn steps_of(&self, plant: &Plant, question: u32) -> std::ops::Range<u32> {
+    /// The windows in which a question about one of them is asked.
+    pub(super) fn steps_of(&self, plant: &Plant, question: u32) -> Stretch {
         let moment = self.asked.questions[question as usize].moment;
-        let first = match moment.map(|moment| &self.scenario.stimulus.moments[moment as usize].kind) {
-            Some(MomentKind::Step(step)) => step + 1,
-            _ => 0,
-        };
-        let mut inputs = plant.initial.clone();
-        for (number, step) in plant.steps.iter().enumerate() {
-            let changes = step.set.iter().any(|(net, value)| inputs[*net as usize] != *value);
-            step.set.iter().for_each(|(net, value)| inputs[*net as usize] = *value);
-            if number as u32 >= first && changes && !plant.may_coincide(number) {
-                return first..number as u32 + 1;
-            }
-        }
-        first..plant.steps.len() as u32 + 1
+        // power-up is window 0, if there is one
+        let first = moment.map_or(0, |moment| moment + u32::from(self.scenario.begin_window().is_none()));
+        plant.stretch(first)
     }
 
     fn glitches(&mut self, index: u32, questions: &[u32]) -> Result<(), Unsaid> {
@@ -498,7 +487,7 @@ impl<'a> Prover<'a> {
         let world = self.world(&[rule.net], &[])?;
         let watch = Moves { net: world.plant.local(rule.net).expect("the cone holds its nets"), most: 2 };
         let from = self.proof.claims.len();
-        let glitch = |_: &Question, steps: std::ops::Range<u32>, hit: u32| {
+        let glitch = |_: &Question, steps: &Stretch, hit: u32| {
             let moved = Moves::moved(hit);
             steps.contains(&moved.steps) && moved.count >= 2
         };
@@ -530,7 +519,7 @@ impl<'a> Prover<'a> {
                 continue;
             }
             let watch = Moves { net: world.plant.local(count.net).expect("the cone holds its nets"), most };
-            let wrong = |_: &Question, steps: std::ops::Range<u32>, hit: u32| {
+            let wrong = |_: &Question, steps: &Stretch, hit: u32| {
                 let moved = Moves::moved(hit);
                 steps.contains(&moved.steps) && !(count.least..=count.most).contains(&moved.count)
             };
@@ -544,7 +533,7 @@ impl<'a> Prover<'a> {
     fn settle_within(&mut self, net: NetId, questions: &[u32]) -> Result<(), Unsaid> {
         let spans: Vec<Span> = questions.iter().filter_map(|q| self.asked.questions[*q as usize].bound).collect();
         let world = self.world(&[net], &spans)?;
-        let mut bounds = vec![None; world.plant.steps.len() + 1];
+        let mut bounds = vec![None; world.plant.windows as usize];
         for question in questions {
             let first = self.steps_of(&world.plant, *question).start;
             bounds[first as usize] =
@@ -567,9 +556,9 @@ impl<'a> Prover<'a> {
         good: &dyn Fn(&Plant, &[u64], u32) -> bool,
     ) -> Result<(), Unsaid> {
         let world = self.world(nets, &[])?;
-        let ranges: Vec<(u32, std::ops::Range<u32>)> =
+        let ranges: Vec<(u32, Stretch)> =
             questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
-        let bad = |found: &Explored, steps: &std::ops::Range<u32>| -> Vec<(u32, super::explored::Rest)> {
+        let bad = |found: &Explored, steps: &Stretch| -> Vec<(u32, super::explored::Rest)> {
             let all = found.rests.iter().filter(|(rest, _)| {
                 let begins = rest.steps == 0 && steps.start == 0;
                 steps.contains(&rest.steps)
@@ -737,6 +726,10 @@ impl<'a> Prover<'a> {
         let mut parts: Vec<Vec<NetId>> = vec![Vec::new(); circuit.block_count()];
         for gate in circuit.gates() {
             parts[circuit.block(gate) as usize].push(circuit.net_of(gate));
+        }
+        // edges of every clock begin windows of all parts
+        for part in &mut parts {
+            part.extend(self.scenario.stimulus.clocks.iter().map(|clock| clock.net));
         }
         parts
     }

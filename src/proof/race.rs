@@ -16,6 +16,14 @@ pub enum Quantity {
     Place(u32),
     /// How much later than the first of its step an input changes.
     Late(u32, NetId),
+    /// First edge of a clock (by its number in the scenario), from the start.
+    First(u32),
+    /// Period of a clock.
+    Period(u32),
+    /// Time high of a clock.
+    High(u32),
+    /// How much later than the earliest that jitter allows an edge of a clock comes.
+    Jitter(u32, u32),
 }
 
 impl Quantity {
@@ -30,6 +38,13 @@ impl Quantity {
                 Place::Rest(wait) => DelayRange::exact(*wait),
                 Place::When { .. } => DelayRange::default(),
             },
+            Quantity::First(clock) => scenario.stimulus.clocks[clock as usize].first,
+            Quantity::Period(clock) => scenario.stimulus.clocks[clock as usize].period,
+            Quantity::High(clock) => scenario.stimulus.clocks[clock as usize].high,
+            Quantity::Jitter(clock, _) => {
+                let jitter = scenario.stimulus.clocks[clock as usize].jitter;
+                DelayRange { min: Span::ZERO, typ: jitter, max: jitter + jitter }
+            }
             Quantity::Late(step, _) => {
                 let skew = scenario.stimulus.steps[step as usize].skew.unwrap_or_default();
                 DelayRange { max: skew.max - skew.min, ..DelayRange::exact(Span::ZERO) }

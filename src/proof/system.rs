@@ -19,6 +19,14 @@ pub enum Unknown {
     Place(u32),
     /// How much later than its step an input (an entry of its set) changes.
     Late(u32, u32),
+    /// First edge of a clock (by its number in the plant).
+    First(u32),
+    /// Period of a clock.
+    Period(u32),
+    /// Time high of a clock.
+    High(u32),
+    /// How much later than the earliest that jitter allows an edge of a clock comes.
+    Jitter(u32, u32),
 }
 
 /// A sum of unknowns and a constant, in ticks; terms in the order of the unknowns, none with factor 0.
@@ -141,6 +149,10 @@ struct Walk<'a> {
     excited: Vec<u32>,
     launched: Vec<u32>,
     step_time: Form,
+    /// Edges of each clock that have come.
+    edges: Vec<u32>,
+    /// The block of the last step or edge.
+    opened: Option<usize>,
     /// For each signal the block that last changed it.
     last: Vec<Option<usize>>,
     /// Edges of these gates share one unknown.
@@ -178,6 +190,8 @@ impl System {
             excited: vec![0; plant.gates.len()],
             launched: vec![0; plant.wires.len()],
             step_time: Form::default(),
+            edges: vec![0; plant.clocks.len()],
+            opened: None,
             last: vec![None; plant.signals()],
             shared,
         };
@@ -186,6 +200,15 @@ impl System {
         }
         for (number, block) in trace.iter().enumerate() {
             walk.block(number, block);
+        }
+        // edges that the trace does not hold come later
+        if let Some(end) = walk.system.times.last().cloned() {
+            for clock in 0..plant.clocks.len() {
+                if walk.edges[clock] < plant.clocks[clock].edges {
+                    let next = walk.edge_time(clock as u32);
+                    walk.system.push(end.minus(&next), Sense::Below);
+                }
+            }
         }
         for gate in 0..plant.gates.len() as u32 {
             if let Some(since) = walk.since[gate as usize].clone() {
@@ -301,6 +324,7 @@ impl Walk<'_> {
             }
             Mover::Arrival(wire) => self.arrives(wire, 0),
             Mover::Overtaking(..) => unreachable!("it comes with the change that sets out"),
+            Mover::Edge(clock) => self.edge_time(clock),
             Mover::Step(_) => {
                 let place = Unknown::Place(step as u32);
                 match self.plant.steps[step].place {
@@ -326,6 +350,31 @@ impl Walk<'_> {
                 before.plus(self.unknown(Unknown::Late(step as u32, entry), 0, range))
             }
         }
+    }
+
+    /// When the next edge of a clock comes: all from the same figures. One that jitter would put before the start is left out.
+    fn edge_time(&mut self, clock: u32) -> Form {
+        let it = &self.plant.clocks[clock as usize];
+        let edge = self.edges[clock as usize];
+        let mut time = Form::default().plus(self.unknown(Unknown::First(clock), 0, it.first));
+        let mut periods = i64::from(edge / 2);
+        if edge % 2 == 1 {
+            let high = self.unknown(Unknown::High(clock), 0, it.high);
+            time.add(high, if it.initial { -1 } else { 1 });
+            periods += i64::from(it.initial);
+        }
+        if periods > 0 {
+            let period = self.unknown(Unknown::Period(clock), 0, it.period);
+            time.add(period, periods);
+        }
+        if it.jitter > 0 {
+            let range = Ticks { min: 0, max: 2 * it.jitter };
+            time = time.plus(self.unknown(Unknown::Jitter(clock, edge), 0, range)).with(-it.jitter);
+            if edge == 0 {
+                self.system.push(Form::default().minus(&time), Sense::AtMost);
+            }
+        }
+        time
     }
 
     /// A change sets out on a wire, and removes so many of those before it.
@@ -369,8 +418,9 @@ impl Walk<'_> {
             }
         }
         let time = time.unwrap_or_default();
-        let step = taken > self.steps;
-        let rests = step && matches!(plant.steps[self.steps].place, PlantPlace::Rest(_));
+        let edged = block.movers.iter().any(|mover| matches!(mover, Mover::Edge(_)));
+        let step = taken > self.steps || edged;
+        let rests = step && taken > self.steps && matches!(plant.steps[self.steps].place, PlantPlace::Rest(_));
         let changed: Vec<usize> =
             (0..plant.signals()).filter(|s| bit(&self.values, *s) != bit(&block.values, *s)).collect();
 
@@ -378,6 +428,7 @@ impl Walk<'_> {
         let mut earlier: Vec<usize> = Vec::new();
         if step && !rests {
             earlier.extend(self.last.iter().flatten());
+            earlier.extend(self.opened.filter(|_| !plant.clocks.is_empty()));
         } else if !rests {
             let mut see = |signal: usize| earlier.extend(self.last[signal]);
             for signal in &changed {
@@ -418,10 +469,14 @@ impl Walk<'_> {
                     self.flights[wire as usize].pop_front();
                 }
                 Mover::Gate(gate) => self.since[gate as usize] = None,
+                Mover::Edge(clock) => self.edges[clock as usize] += 1,
                 Mover::Overtaking(..) | Mover::Step(_) | Mover::Late(_) => {}
             }
         }
         if step {
+            self.opened = Some(number);
+        }
+        if taken > self.steps {
             self.step_time = time.clone();
             self.steps = taken;
         }

@@ -2,6 +2,7 @@
 
 use super::explore::Explorer;
 use super::key::{Agent, Key, KeyMut, Mover, bit, put};
+use super::outside;
 use super::passed::Cell;
 use super::semantics::Semantics;
 use super::watch::Watch;
@@ -17,13 +18,16 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         }
         let taken = self.found.key(key).steps();
         let mut movers: Vec<Mover> = Vec::with_capacity(agents.len() + 1);
-        let of_step = agents.iter().find(|agent| matches!(agent.mover, Mover::Step(_)));
+        let opening = agents.iter().find(|agent| agent.opens());
+        let of_step = opening.filter(|agent| agent.steps > 0);
         if of_step.is_some() {
             // inputs that are late come first
             let late = self.found.key(key).skew();
             movers.extend((0..64).filter(|entry| late >> entry & 1 == 1).map(Mover::Late));
         }
-        movers.extend(agents.iter().map(|agent| agent.mover).filter(|mover| !matches!(mover, Mover::Step(_))));
+        movers.extend(agents.iter().filter(|agent| !agent.opens()).map(|agent| agent.mover));
+        let edges = opening.map_or(0, |agent| agent.edges);
+        movers.extend(outside::numbers(edges).map(|clock| Mover::Edge(clock as u32)));
         let numbers = match of_step {
             Some(agent) => vec![agent.steps],
             None if agents.is_empty() => self.plant.at_once(taken),
@@ -128,6 +132,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
                 Mover::Gate(gate) => flip(&mut self.words, plant.inputs + gate as usize),
                 Mover::Arrival(wire) => flip(&mut self.words, plant.nets.len() + wire as usize),
                 Mover::Overtaking(..) => {}
+                Mover::Edge(clock) => flip(&mut self.words, plant.clocks[clock as usize].net as usize),
                 Mover::Step(mask) => {
                     let mut waits = 0;
                     for (entry, (net, value)) in plant.steps[taken].set.iter().enumerate() {

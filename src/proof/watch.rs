@@ -29,6 +29,8 @@ pub struct Block<'a> {
     pub step: Option<usize>,
     /// How many steps come at that instant: they share a window.
     pub steps: usize,
+    /// The windows of the steps and edges in it, first first; see [`Rest`](super::Rest).
+    pub opens: &'a [u32],
     /// Did nothing pend in the circuit before it?
     pub rested: bool,
     /// Do inputs change in it, of a step that came before?
@@ -50,6 +52,10 @@ impl Block<'_> {
 
     /// Do the steps in it change an input here, now or later?
     pub fn touches(&self) -> bool {
+        if self.opens.len() > self.steps {
+            // an edge of a clock changes what it drives
+            return true;
+        }
         let Some(step) = self.step else { return false };
         let steps = &self.plant.steps[step..step + self.steps];
         // the last one to set an input decides
@@ -71,8 +77,10 @@ pub struct Arrival<'a> {
     pub values: &'a [u64],
     /// Does nothing pend in the circuit?
     pub rest: bool,
-    /// Steps taken.
-    pub steps: usize,
+    /// The window; see [`Rest`](super::Rest).
+    pub window: u32,
+    /// Has everything come from outside that can?
+    pub ended: bool,
     /// The zone on arrival, cut to those cases in which time goes on before the next batch; whole if the watch says that it
     /// does not look at it.
     pub zone: &'a Matrix,

@@ -22,14 +22,16 @@ impl Prover<'_> {
         let circuit = self.scenario.circuit.clone();
         let parts = self.parts();
         let steps = self.scenario.stimulus.steps.len();
-        let mut windows: Vec<Window> = vec![Window::default(); steps + 1];
+        let power_up = self.scenario.begin_window().is_some();
+        let first = usize::from(!power_up);
+        let all = self.scenario.stimulus.moments.len() + first;
+        let clocked = all > steps + 1;
+        let mut windows: Vec<Window> = vec![Window::default(); all];
         for nets in &parts {
             if self.part(&circuit, nets, &mut windows).is_err() {
                 return;
             }
         }
-        let power_up = self.scenario.begin_window().is_some();
-        let first = usize::from(!power_up);
         let coincide: Vec<bool> = match Plant::of(self.scenario, &[], &[]) {
             Ok(plant) => (0..steps).map(|step| plant.may_coincide(step)).collect(),
             Err(_) => return,
@@ -42,8 +44,13 @@ impl Prover<'_> {
             let moment = if power_up { taken } else { taken - 1 } as u32;
             let mut window = window.done(self.scenario, taken, moment);
             // steps of one instant share a window, named by the first: which, depends on the run
-            if shared(taken) {
+            if !clocked && shared(taken) {
                 (window.states, window.settling) = (None, None);
+            }
+            // with clocks several parts, or inputs that no gate reads, may stand in many ways to each other
+            let unread = |net: NetId| circuit.readers(net).is_empty();
+            if clocked && (parts.len() > 1 || circuit.inputs().any(unread)) {
+                window.states = None;
             }
             self.proof.windows.push(window);
         }
@@ -54,7 +61,9 @@ impl Prover<'_> {
         let found = self.explore(&world, &Nothing, Mode::default())?;
         for (taken, window) in windows.iter_mut().enumerate() {
             let mut states: Vec<State> = Vec::new();
-            for rest in found.rests.keys().filter(|rest| rest.steps as usize == taken) {
+            // several steps and edges at one instant are named by the first
+            let named = |it: u32| it as usize == taken || it == world.plant.windows + taken as u32;
+            for rest in found.rests.keys().filter(|rest| named(rest.steps)) {
                 let mut state = State::known(Bits::zeros(circuit.net_count()));
                 for (local, net) in world.plant.nets.iter().enumerate() {
                     state.set(net.index(), bit(&found.states[rest.state as usize], local).into());
@@ -78,9 +87,10 @@ impl Prover<'_> {
         self.explore(&world, &watch, Mode { joint, ..Mode::default() })?;
         for (taken, window) in windows.iter_mut().enumerate() {
             let figures = watch.figures.borrow();
-            let these = figures
-                .get(&(taken as u32))
-                .map(|[least, most]| (world.plant.span(least.0), world.plant.span(most.0), !most.1));
+            let several = world.plant.windows + taken as u32;
+            let named = [taken as u32, several].into_iter().filter_map(|window| figures.get(&window));
+            let both = named.copied().reduce(|a, b| [a[0].min(b[0]), a[1].max(b[1])]);
+            let these = both.map(|[least, most]| (world.plant.span(least.0), world.plant.span(most.0), !most.1));
             window.settle(these, ties);
         }
         Ok(())
@@ -134,12 +144,14 @@ impl Window {
     fn done(self, scenario: &Scenario, taken: usize, moment: u32) -> WindowProof {
         // inputs that no gate reads belong to no part
         let mut inputs = scenario.stimulus.initial.clone();
-        for step in &scenario.stimulus.steps[..taken] {
+        for step in scenario.stimulus.steps.iter().take(taken) {
             step.set.iter().for_each(|(net, value)| inputs[net.index()] = *value);
         }
         let mut states = self.states.flatten();
         for state in states.iter_mut().flatten() {
-            inputs.iter().enumerate().for_each(|(net, value)| state.set(net, (*value).into()));
+            if scenario.stimulus.clocks.is_empty() {
+                inputs.iter().enumerate().for_each(|(net, value)| state.set(net, (*value).into()));
+            }
         }
         if let Some(states) = &mut states {
             states.sort();

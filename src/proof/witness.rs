@@ -71,6 +71,17 @@ pub fn case(
                 }
             }
             Unknown::Place(step) => instance.places[step as usize] = value,
+            Unknown::First(clock) => instance.clocks[plant.clocks[clock as usize].clock as usize].first = value,
+            Unknown::Period(clock) => instance.clocks[plant.clocks[clock as usize].clock as usize].period = value,
+            Unknown::High(clock) => instance.clocks[plant.clocks[clock as usize].clock as usize].high = value,
+            Unknown::Jitter(clock, edge) => {
+                let it = &plant.clocks[clock as usize];
+                let most = scenario.stimulus.clocks[it.clock as usize].jitter;
+                let moved = value.fs() as i64 - most.fs() as i64;
+                if let Some(place) = instance.clocks[it.clock as usize].jitter.get_mut(edge as usize) {
+                    *place = moved;
+                }
+            }
             Unknown::Late(step, entry) => {
                 let of = &scenario.stimulus.steps[step as usize];
                 let (net, _) = plant.steps[step as usize].set[entry as usize];
@@ -80,6 +91,11 @@ pub fn case(
                 }
             }
         }
+    }
+    // figures that were tried beyond their ranges must still make a clock
+    for clock in &mut instance.clocks {
+        clock.high = clock.high.max(Span::TICK);
+        clock.period = clock.period.max(clock.high + Span::TICK);
     }
     // steps that the trace does not reach stay in order behind it
     let movers = trace.iter().flat_map(|block| &block.movers);

@@ -19,6 +19,18 @@ pub struct Grid {
     pub gates: Vec<GridGate>,
     pub wires: Vec<GridWire>,
     pub steps: Vec<GridStep>,
+    pub clock: Option<GridClock>,
+}
+
+/// One clock, each time between two of its edges drawn by itself: the same as one with figures of its own, if it has but two
+/// edges or if only the first of them is in a range.
+#[derive(Clone, Debug)]
+pub struct GridClock {
+    net: usize,
+    first: (u64, u64),
+    /// To the second edge of a period, and to the first of the next.
+    between: [(u64, u64); 2],
+    edges: u8,
 }
 
 #[derive(Clone, Debug)]
@@ -69,6 +81,12 @@ struct State {
     late: Vec<(u8, u64)>,
     /// The next step, and the time that its place counts, if it does by now.
     next: u8,
+    /// Edges that have come, and the time since the last, as long as there are more.
+    edges: u8,
+    tick: u64,
+    /// The number of the step or edge that began the window, from 1, edges behind steps; where several did, that of the first and
+    /// the number of all windows.
+    window: u32,
     wait: u64,
     /// Has that time just begun, so that a step could come at once?
     fresh: bool,
@@ -141,7 +159,19 @@ impl Grid {
             set: set.iter().map(|(name, bit)| (net(name), *bit)).collect(),
             skew: step.skew.map_or(0, |skew| skew.max.fs() * fine),
         });
-        Grid { inputs, gates: world.gates.iter().map(gate).collect(), wires: wires.collect(), steps: steps.collect() }
+        let clock = world.clocks.first().map(|(name, clock)| {
+            let (period, high) = (range(clock.period), range(clock.high));
+            let low = (period.0 - high.1, period.1 - high.0);
+            let rises = !world.inputs[net(name)].1;
+            GridClock {
+                net: net(name),
+                first: range(clock.first),
+                between: if rises { [high, low] } else { [low, high] },
+                edges: 2 * clock.count as u8,
+            }
+        });
+        let gates = world.gates.iter().map(gate).collect();
+        Grid { inputs, gates, wires: wires.collect(), steps: steps.collect(), clock }
     }
 
     fn nets(&self) -> usize {
@@ -209,6 +239,9 @@ impl Grid {
                 due: Vec::new(),
                 late: Vec::new(),
                 next: 0,
+                edges: 0,
+                tick: 0,
+                window: 0,
                 wait: NEVER,
                 fresh: true,
                 gives_up: NEVER,
@@ -327,7 +360,7 @@ impl Runs<'_> {
 
     /// Notes what a state after a batch shows.
     fn note(&mut self, state: &State) {
-        let steps = u32::from(state.next);
+        let steps = state.window;
         if state.due.is_empty() && state.late.is_empty() {
             self.seen.rests.insert((steps, state.origin, state.values));
             if self.times {
@@ -366,6 +399,15 @@ impl Runs<'_> {
         }
     }
 
+    /// The range of the time from the last edge of the clock to the next, if there is one.
+    fn edge(&self, state: &State) -> Option<(u64, u64)> {
+        let clock = self.grid.clock.as_ref().filter(|clock| state.edges < clock.edges)?;
+        Some(match state.edges {
+            0 => clock.first,
+            edges => clock.between[usize::from(edges % 2 == 0)],
+        })
+    }
+
     /// The states after the next instant at which something can happen, each with whether several things fall together.
     fn next(&self, state: &State, into: &mut Vec<(State, bool)>) {
         let grid = self.grid;
@@ -384,7 +426,8 @@ impl Runs<'_> {
             true => 0,
             false => lo.saturating_sub(state.wait).max(1),
         });
-        let mut soonest = pending.chain(step).chain([state.gives_up]).min().unwrap_or(NEVER);
+        let edge = self.edge(&state).map(|(lo, _)| lo.saturating_sub(state.tick).max(1));
+        let mut soonest = pending.chain(step).chain(edge).chain([state.gives_up]).min().unwrap_or(NEVER);
         if soonest == NEVER {
             match grid.steps.get(state.next as usize).map(|step| &step.place) {
                 Some(GridPlace::Rest(wait)) => {
@@ -413,6 +456,9 @@ impl Runs<'_> {
         if state.gives_up != NEVER {
             state.gives_up -= soonest;
         }
+        if edge.is_some() {
+            state.tick += soonest;
+        }
         state.now = if self.timed_from_start[state.next as usize] { state.now + soonest } else { 0 };
         state.fresh = false;
 
@@ -438,6 +484,14 @@ impl Runs<'_> {
                 _ => {}
             }
         }
+        const EDGE: usize = 98;
+        if let Some((lo, hi)) = self.edge(&state) {
+            match state.tick {
+                tick if tick == hi => must.push(EDGE),
+                tick if tick >= lo => may.push(EDGE),
+                _ => {}
+            }
+        }
         let late = state.late.iter().any(|late| late.1 == 0);
         for choice in 0..1u32 << may.len() {
             let chosen = may.iter().enumerate().filter(|(i, _)| choice >> i & 1 == 1).map(|(_, at)| *at);
@@ -447,14 +501,25 @@ impl Runs<'_> {
                 continue;
             }
             let stepping = all.contains(&STEP);
-            let fires: Vec<usize> = all.into_iter().filter(|at| *at != STEP).collect();
-            let fell = fires.len() + usize::from(stepping) + state.late.iter().filter(|late| late.1 == 0).count();
-            self.batch(&state, &fires, stepping, settled, &mut |next| into.push((next, fell > 1)));
+            let edging = all.contains(&EDGE);
+            let fires: Vec<usize> = all.into_iter().filter(|at| *at != STEP && *at != EDGE).collect();
+            let fell = fires.len()
+                + usize::from(stepping)
+                + usize::from(edging)
+                + state.late.iter().filter(|late| late.1 == 0).count();
+            self.batch(&state, &fires, (stepping, edging), settled, &mut |next| into.push((next, fell > 1)));
         }
     }
 
-    /// All that can come of these events firing, with or without the next step.
-    fn batch(&self, state: &State, fires: &[usize], stepping: bool, settled: bool, into: &mut dyn FnMut(State)) {
+    /// All that can come of these events firing, with or without the next step and the next edge.
+    fn batch(
+        &self,
+        state: &State,
+        fires: &[usize],
+        (stepping, edging): (bool, bool),
+        settled: bool,
+        into: &mut dyn FnMut(State),
+    ) {
         let grid = self.grid;
         let mut state = state.clone();
         let before = state.clone();
@@ -521,9 +586,25 @@ impl Runs<'_> {
                 ready.push((state, (set, to), false));
             }
         }
-        for (mut state, becomes) in taken {
+        for (mut state, mut becomes) in taken {
             let mut changed = changed;
-            if stepping {
+            let mut opened: Vec<u32> = (before.next..state.next).map(|step| u32::from(step) + 1).collect();
+            if let Some(clock) = grid.clock.as_ref().filter(|_| edging) {
+                opened.push(grid.steps.len() as u32 + 1 + u32::from(state.edges));
+                state.values ^= 1 << clock.net;
+                becomes |= 1 << clock.net;
+                state.edges += 1;
+                (state.tick, state.since) = (0, 0);
+            }
+            match (opened.as_slice(), &grid.clock) {
+                ([.., last], None) => state.window = *last,
+                ([one], _) => state.window = *one,
+                ([first, ..], Some(clock)) => {
+                    state.window = grid.steps.len() as u32 + 1 + u32::from(clock.edges) + first;
+                }
+                ([], _) => {}
+            }
+            if stepping || edging {
                 changed = (before.values ^ state.values) & ((1 << grid.inputs) - 1);
                 // a step that changes nothing begins no window
                 if becomes != 0 {

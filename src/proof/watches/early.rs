@@ -3,7 +3,7 @@
 use crate::proof::plant::Plant;
 use crate::proof::watch::{Block, Fate, SAME, Watch};
 
-/// A step comes while something pends in the plant. A hit is the number of steps taken once it has come.
+/// A step or edge comes while something pends in the plant. A hit is its window.
 #[derive(Clone, Copy, Debug, Default)]
 pub struct BeforeRest;
 
@@ -21,8 +21,8 @@ impl Watch for BeforeRest {
     }
 
     fn block(&self, state: u32, block: &Block<'_>, hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
-        if let (Some(step), false) = (block.step, block.rested) {
-            (step..step + block.steps).for_each(|step| hit(step as u32 + 1));
+        if !block.rested {
+            block.opens.iter().for_each(|window| hit(*window));
         }
         (state, SAME)
     }

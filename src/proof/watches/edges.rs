@@ -20,9 +20,9 @@ impl Edge {
     }
 }
 
-/// Steps taken once a block has come.
+/// The window once a block has come.
 fn steps(state: u32, block: &Block<'_>) -> u32 {
-    block.step.map_or(state >> 2, |step| step as u32 + 1)
+    block.opens.first().copied().unwrap_or(state >> 2)
 }
 
 /// Could clock `row` be below c?
@@ -133,7 +133,7 @@ impl Watch for Answered {
     }
 
     fn arrive(&self, state: u32, arrival: &Arrival<'_>, hit: &mut dyn FnMut(u32)) {
-        let over = arrival.rest && arrival.steps == arrival.plant.steps.len();
+        let over = arrival.rest && arrival.ended;
         if state & 1 == 1 && over && self.must {
             hit(state >> 2);
         }

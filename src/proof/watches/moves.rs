@@ -67,7 +67,7 @@ impl Watch for Moves {
     fn arrive(&self, state: u32, arrival: &Arrival<'_>, hit: &mut dyn FnMut(u32)) {
         if arrival.rest && state & Self::JUDGED != 0 {
             let before = u32::from(state & Self::BEFORE != 0);
-            hit((arrival.steps as u32) << 8 | (state & 0x7F) << 1 | before);
+            hit(arrival.window << 8 | (state & 0x7F) << 1 | before);
         }
     }
 }

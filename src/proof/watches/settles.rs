@@ -27,10 +27,10 @@ impl Watch for Settles {
     }
 
     fn block(&self, state: u32, block: &Block<'_>, _hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
-        match block.step {
-            Some(_) => (1, [Fate::Begin; 2]),
-            None if block.late => (state, [Fate::Begin; 2]),
-            None => (state, SAME),
+        match block.opens.is_empty() {
+            false => (1, [Fate::Begin; 2]),
+            true if block.late => (state, [Fate::Begin; 2]),
+            true => (state, SAME),
         }
     }
 
@@ -39,12 +39,12 @@ impl Watch for Settles {
             let (least, most) = (arrival.zone.at(0, arrival.row), arrival.zone.at(arrival.row, 0));
             let (least, most) = (limit(least), limit(most));
             let mut figures = self.figures.borrow_mut();
-            let [first, last] = figures.entry(arrival.steps as u32).or_insert([(-least.0, least.1), most]);
+            let [first, last] = figures.entry(arrival.window).or_insert([(-least.0, least.1), most]);
             if (-least.0, !least.1) < (first.0, !first.1) {
                 *first = (-least.0, least.1);
             }
             *last = (*last).max(most);
-            hit(arrival.steps as u32);
+            hit(arrival.window);
         }
     }
 }
@@ -89,11 +89,10 @@ impl Watch for Late {
     }
 
     fn block(&self, state: u32, block: &Block<'_>, hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
-        if let (Some(step), true) = (block.step, block.touches()) {
+        if let (Some(first), true) = (block.opens.first(), block.touches()) {
             // of steps of one instant the first that is asked names the window
-            let mut taken = (step as u32 + 1..).take(block.steps);
-            let asked = taken.find(|taken| self.begin(*taken) & Self::ASKED != 0);
-            return (self.begin(asked.unwrap_or(step as u32 + 1)), [Fate::Begin; 2]);
+            let asked = block.opens.iter().find(|window| self.begin(**window) & Self::ASKED != 0);
+            return (self.begin(*asked.unwrap_or(first)), [Fate::Begin; 2]);
         }
         if block.late && state & 3 != 0 {
             return ((state & !3) | Self::ASKED, [Fate::Begin; 2]);

@@ -36,7 +36,7 @@ impl Watch for Shows {
 
     fn arrive(&self, _state: u32, arrival: &Arrival<'_>, hit: &mut dyn FnMut(u32)) {
         if matches(&self.pattern, arrival.values) {
-            hit(arrival.steps as u32);
+            hit(arrival.window);
         }
     }
 }
@@ -64,7 +64,7 @@ impl Watch for ShowsLonger {
     }
 
     fn block(&self, state: u32, block: &Block<'_>, hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
-        let steps = block.step.map_or(state >> 1, |step| step as u32 + 1);
+        let steps = block.opens.first().copied().unwrap_or(state >> 1);
         // a wait for rest is not seen passing
         if state & 1 == 1 && block.zone.may_pass(block.row, self.longer) {
             hit(state >> 1);

@@ -24,7 +24,7 @@ impl Watch for Swallows {
     }
 
     fn block(&self, state: u32, block: &Block<'_>, hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
-        let steps = block.step.map_or(state, |step| step as u32 + 1);
+        let steps = block.opens.first().copied().unwrap_or(state);
         if block.disabled.iter().any(|(gate, row)| *gate == self.gate && block.zone.may_pass(*row, 0)) {
             // what a step cancels at its instant belongs to its window
             hit(steps);
