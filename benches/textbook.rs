@@ -69,7 +69,9 @@ impl Textbook {
             after: steps.iter().map(|step| matches!(step.place, Place::After(_))).collect(),
             start: circuit
                 .nets()
-                .map(|net| scenario.stimulus.initial.get(net.index()).copied().unwrap_or_else(|| start(net) == Value::One))
+                .map(|net| {
+                    scenario.stimulus.initial.get(net.index()).copied().unwrap_or_else(|| start(net) == Value::One)
+                })
                 .collect(),
             values: vec![false; circuit.net_count()],
             stamp: vec![0; circuit.gate_count()],

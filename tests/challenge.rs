@@ -252,8 +252,8 @@ fn demonstrations_agree() {
     let table = [
         ("handshake", [29, 0, 0, 0], 0),
         ("interlock-walk", [104, 2, 0, 0], 0),
-        ("permit", [16, 2, 0, 0], 0),
-        ("power-up", [10, 0, 0, 0], 0),
+        ("permit", [14, 2, 2, 0], 0),
+        ("power-up", [9, 1, 0, 0], 0),
         ("pulse-train", [1, 0, 0, 2], 0),
         ("push-button", [0, 0, 0, 16], 0),
         ("selector", [9, 1, 0, 0], 0),

@@ -312,7 +312,9 @@ impl Recurrence {
     pub(super) fn mark_anew(&mut self, mut each: impl FnMut(u32)) {
         for block in self.noted.drain(..) {
             let b = block as usize;
-            self.members[self.member_start[b] as usize..self.member_start[b + 1] as usize].iter().for_each(|node| each(*node));
+            self.members[self.member_start[b] as usize..self.member_start[b + 1] as usize]
+                .iter()
+                .for_each(|node| each(*node));
         }
     }
 

@@ -19,7 +19,9 @@ fn rings(count: usize, transitions: u64) -> String {
              [\"b{ring}\"] }}\nx{ring} = {{ xor = [\"c{ring}\", \"{before}\"] }}\n"
         );
     }
-    text + &format!("[limits]\ntransitions = {transitions}\n[[steps]]\nat = 10\nset = {{ go = 1 }}\n[[steps]]\nat = 1000000000\nset = {{ go = 0 }}\n")
+    text + &format!(
+        "[limits]\ntransitions = {transitions}\n[[steps]]\nat = 10\nset = {{ go = 1 }}\n[[steps]]\nat = 1000000000\nset = {{ go = 0 }}\n"
+    )
 }
 
 fn stillgate(folder: &Path, arguments: &[&str]) -> Output {

@@ -12,10 +12,6 @@ const NAMED: usize = 3;
 
 /// The proof beside the sweep.
 pub(super) fn challenge(paper: &mut Paper, scenario: &Scenario, review: &Review) {
-    // it belongs to the search, where there is one
-    if review.search.is_none() {
-        paper.gap();
-    }
     let Some(proof) = &review.proof else {
         let text = "Proof over all delays: none was asked for, so nothing is proved.";
         return paper.say(0, Tone::Unsure, text);
