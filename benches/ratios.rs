@@ -4,6 +4,8 @@
 //! long an event takes in both (the fastest turn; reset included, nothing drawn), their ratio, and what ratio is wanted.
 //! Names given after `--` choose rows.
 
+#![allow(clippy::print_stdout)] // its figures are its output
+
 #[allow(dead_code)] // other programs use the rest
 mod networks;
 mod textbook;

@@ -62,7 +62,7 @@ mod due {
 /// All judges of a scenario. The answers go to the sink.
 ///
 /// Most windows lead from rest to rest and keep all that is asked of them. What can be told of such a window beforehand is
-/// laid up as [`Usual`], and the sink is told in one call at its end ([`Sink::routine`]).
+/// laid up as `Usual`, and the sink is told in one call at its end ([`Sink::routine`]).
 #[derive(Clone, Debug)]
 pub struct Judge<S> {
     /// Where the answers go.
