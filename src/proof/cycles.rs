@@ -120,12 +120,14 @@ fn cycles(
     (Vec::new(), Ended::Zones)
 }
 
-/// For each node those that it leads to, and the nodes that lie on cycles or between two of them.
+/// For each node those that it leads to before the next step, and the nodes that lie on cycles or between two of them.
+///
+/// No cycle goes past a step, and a way from one cycle past a step to another must not hide the first.
 fn trimmed(found: &Explored) -> (Vec<Vec<u32>>, Vec<u32>) {
     let count = found.nodes();
     let mut leads: Vec<Vec<u32>> = vec![Vec::new(); count];
     let mut comes: Vec<Vec<u32>> = vec![Vec::new(); count];
-    for (from, to) in &found.edges {
+    for (from, to) in found.edges.iter().filter(|(from, to)| found.steps(*from) == found.steps(*to)) {
         leads[*from as usize].push(*to);
         comes[*to as usize].push(*from);
     }
@@ -157,7 +159,7 @@ fn first_cycles(plant: &Plant, found: &Explored, leads: &[Vec<u32>], lasting: &[
         if walked[root as usize] {
             continue;
         }
-        // each of them leads to another; those between two cycles lead to the steps of the second
+        // each of them leads to another after as many steps
         let mut path: Vec<u32> = Vec::new();
         let mut at = root;
         while !std::mem::replace(&mut walked[at as usize], true) {
