@@ -46,7 +46,7 @@
 //! // with delays: 200 draws of them
 //! let program = Program::new(&scenario, &Control::default()).unwrap();
 //! let review = review::review(&scenario, &program, 1, &Control::default()).unwrap();
-//! assert_eq!(review.verdict.call.words(), "no failure found");
+//! assert_eq!(review.verdict.call.words(), "proved");
 //! assert_eq!(review.sweep.windows[0].outcomes.len(), 1);
 //! ```
 //!

@@ -139,6 +139,32 @@ fn what_is_found_before_the_budget_ends_was_found() {
     assert!(!expected.contains(&Call::Proved), "{expected:?}");
 }
 
+/// Of two windows that can both oscillate, the way from the first past its rest to the second hides neither.
+#[test]
+fn an_oscillation_before_another_is_found() {
+    let text = r#"
+[inputs]
+a = 1
+[initial]
+g = 1
+h = 1
+[gates]
+g = { buf = ["h"], delay = [30, 90] }
+h = { xor = ["h", "a", "g"], fall = [18, 54], rise = [20, 60] }
+[[steps]]
+set = { a = 0 }
+[[steps]]
+rest = 76
+set = { a = 1 }
+"#;
+    let (asked, proof) = proof(text, 50_000);
+    let oscillates = |claim: &&stillgate::proof::Claim| {
+        asked.questions[claim.question as usize].rule == stillgate::findings::RuleKey::Oscillation
+    };
+    let claims: Vec<_> = proof.claims.iter().filter(oscillates).collect();
+    assert_eq!(claims.iter().map(|it| (it.call, it.but_for_ties)).collect::<Vec<_>>(), [(Call::Refuted, false); 2]);
+}
+
 /// A glitch belongs to the window of its step, also where the next step comes at the same instant, or changes nothing here.
 #[test]
 fn windows_go_on_past_steps_that_begin_none() {

@@ -82,7 +82,7 @@ fn a_pulse_that_only_equality_hides_appears_and_is_replayed() {
 
     // an inertial gate swallows such a pulse, whatever the order
     let (_, inertial) = reviewed(&CROSSING.replace(", filter = \"transport\"", ""));
-    assert_eq!((inertial.verdict.call, find(&inertial, Kind::Glitch).is_none()), (Call::NoFailureFound, true));
+    assert_eq!((inertial.verdict.call, find(&inertial, Kind::Glitch).is_none()), (Call::Proved, true));
 }
 
 #[test]
@@ -138,7 +138,7 @@ fn what_only_the_longest_delays_break_breaks_its_rule() {
     assert!(review.verdict.sentence.contains("in no draw, but with max delays"), "{}", review.verdict.sentence);
     // a bound that is met exactly is met: moving the delay past it is no tie
     let (_, review) = buffer("9");
-    assert_eq!(review.verdict.call, Call::NoFailureFound, "{:?}", review.sweep.findings);
+    assert_eq!(review.verdict.call, Call::Proved, "{:?}", review.sweep.findings);
 }
 
 #[test]

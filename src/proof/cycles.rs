@@ -4,6 +4,8 @@
 //! cycle there is only a suspicion: the way back may lead into a part of the zone from which it does not lead back again.
 //! It is settled by a second exploration that joins equal zones only: what is reached again is then the very same set.
 
+use std::collections::BTreeSet;
+
 use super::explore::explore;
 use super::explored::{Budget, Ended, Explored, Fired, Merge, Mode};
 use super::key::bit;
@@ -42,21 +44,37 @@ pub struct Cycle {
 /// cycle is left when nothing happens together. Each of a few explorations may spend the whole budget; if one of them ends
 /// early, the cycles found are real, but there may be others.
 pub fn comes_to_rest(plant: &Plant, starts: &[Vec<bool>], budget: &Budget) -> RestVerdict {
-    comes_to_rest_within(plant, starts, budget, &mut 0)
+    comes_to_rest_within(plant, starts, budget).verdict
 }
 
-/// As [`comes_to_rest`]; adds the zones that were kept to `zones`.
-pub(super) fn comes_to_rest_within(
+/// What was found out, how much it took, and what is open.
+pub(super) struct Looked {
+    pub verdict: RestVerdict,
+    /// Zones that were kept.
+    pub zones: u64,
+    /// Numbers of steps taken after which there may be a cycle although none was found, since an exploration ended early.
+    pub open: BTreeSet<u32>,
+}
+
+/// As [`comes_to_rest`].
+pub(super) fn comes_to_rest_within(plant: &Plant, starts: &[Vec<bool>], budget: &Budget) -> Looked {
+    let (mut zones, mut open) = (0, BTreeSet::new());
+    let verdict = verdict(plant, starts, budget, &mut zones, &mut open);
+    Looked { verdict, zones, open }
+}
+
+fn verdict(
     plant: &Plant,
     starts: &[Vec<bool>],
     budget: &Budget,
     zones: &mut u64,
+    open: &mut BTreeSet<u32>,
 ) -> RestVerdict {
-    let (mut cycles, ended) = cycles(plant, starts, true, budget, zones);
+    let (mut cycles, ended) = cycles(plant, starts, true, budget, (zones, open));
     if cycles.is_empty() {
         return if ended == Ended::Complete { RestVerdict::Always } else { RestVerdict::Undecided(ended) };
     }
-    let (apart, ended) = self::cycles(plant, starts, false, budget, zones);
+    let (apart, ended) = self::cycles(plant, starts, false, budget, (zones, &mut BTreeSet::new()));
     for cycle in &mut cycles {
         let found = apart.iter().any(|it| it.steps == cycle.steps);
         cycle.needs_ties = (found || ended == Ended::Complete).then_some(!found);
@@ -65,16 +83,25 @@ pub(super) fn comes_to_rest_within(
 }
 
 /// Real cycles, one for each number of steps taken, with or without things that happen together; and whether they are all.
-fn cycles(plant: &Plant, starts: &[Vec<bool>], joint: bool, budget: &Budget, zones: &mut u64) -> (Vec<Cycle>, Ended) {
+fn cycles(
+    plant: &Plant,
+    starts: &[Vec<bool>],
+    joint: bool,
+    budget: &Budget,
+    (zones, open): (&mut u64, &mut BTreeSet<u32>),
+) -> (Vec<Cycle>, Ended) {
     let mode = Mode { joint, edges: true, ..Mode::default() };
     let found = explore(plant, starts, &Nothing, mode, budget);
     *zones += found.zones;
     if found.ended != Ended::Complete {
         return (Vec::new(), found.ended);
     }
-    if trimmed(&found).1.is_empty() {
+    let suspects = trimmed(&found).1;
+    if suspects.is_empty() {
         return (Vec::new(), Ended::Complete);
     }
+    // every real cycle is one of this graph
+    let suspects: BTreeSet<u32> = suspects.into_iter().map(|node| found.window(node)).collect();
     // most real cycles show soon; whatever comes back in a part of the graph is a cycle of the whole
     let soon = Budget { zones: budget.zones.min(1000 + 20 * found.zones), ..budget.clone() };
     let mode = Mode { merge: Merge::Equality, ..mode };
@@ -83,18 +110,24 @@ fn cycles(plant: &Plant, starts: &[Vec<bool>], joint: bool, budget: &Budget, zon
         *zones += found.zones;
         let (leads, lasting) = trimmed(&found);
         if !lasting.is_empty() || !matches!(found.ended, Ended::Zones) {
-            return (first_cycles(plant, &found, &leads, &lasting), found.ended);
+            let cycles = first_cycles(plant, &found, &leads, &lasting);
+            if found.ended != Ended::Complete {
+                open.extend(suspects.iter().filter(|steps| !cycles.iter().any(|it| it.steps == **steps)));
+            }
+            return (cycles, found.ended);
         }
     }
     (Vec::new(), Ended::Zones)
 }
 
-/// For each node those that it leads to, and the nodes that lie on cycles or between two of them.
+/// For each node those that it leads to before the next step, and the nodes that lie on cycles or between two of them.
+///
+/// No cycle goes past a step, and a way from one cycle past a step to another must not hide the first.
 fn trimmed(found: &Explored) -> (Vec<Vec<u32>>, Vec<u32>) {
     let count = found.nodes();
     let mut leads: Vec<Vec<u32>> = vec![Vec::new(); count];
     let mut comes: Vec<Vec<u32>> = vec![Vec::new(); count];
-    for (from, to) in &found.edges {
+    for (from, to) in found.edges.iter().filter(|(from, to)| found.window(*from) == found.window(*to)) {
         leads[*from as usize].push(*to);
         comes[*to as usize].push(*from);
     }
@@ -126,7 +159,7 @@ fn first_cycles(plant: &Plant, found: &Explored, leads: &[Vec<u32>], lasting: &[
         if walked[root as usize] {
             continue;
         }
-        // each of them leads to another; those between two cycles lead to the steps of the second
+        // each of them leads to another after as many steps
         let mut path: Vec<u32> = Vec::new();
         let mut at = root;
         while !std::mem::replace(&mut walked[at as usize], true) {

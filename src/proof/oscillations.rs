@@ -42,7 +42,8 @@ impl Prover<'_> {
             let mut world = self.world(&nets, &[])?;
             // what recurs before the next step is told as well
             world.plant.ends = world.plant.is_timed();
-            let cycles = match self.comes_to_rest(&world) {
+            let (verdict, open) = self.comes_to_rest(&world);
+            let cycles = match verdict {
                 RestVerdict::Always => Vec::new(),
                 RestVerdict::Cycles(cycles) => cycles,
                 RestVerdict::Undecided(ended) => {
@@ -50,7 +51,12 @@ impl Prover<'_> {
                 }
             };
             for question in questions {
-                let claim = self.endless(&world, &cycles, *question);
+                let mut claim = self.endless(&world, &cycles, *question);
+                let steps = self.steps_of(&world.plant, *question);
+                if claim.call == Call::Proved && open.iter().any(|it| steps.contains(it)) {
+                    claim.call = Call::Undecided;
+                    claim.reason = Some("the budget ran out before all cycles were looked for".to_string());
+                }
                 if worst.get(question).is_none_or(|it| it.call.severity() < claim.call.severity()) {
                     worst.insert(*question, claim);
                 }

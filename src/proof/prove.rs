@@ -5,7 +5,7 @@
 //! exploration decides, and a trace of it becomes a case that is run with the judges of the sweep: only what the run shows
 //! is called refuted.
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 use std::time::{Duration, Instant};
 
 use super::claim::{Call, Claim, Proof, Variation};
@@ -185,16 +185,16 @@ impl<'a> Prover<'a> {
         (found, short)
     }
 
-    /// Does every window of a world come to rest?
-    pub(super) fn comes_to_rest(&mut self, world: &World) -> RestVerdict {
+    /// Does every window of a world come to rest? If not, also after which numbers of steps there may be cycles beside those
+    /// that were found.
+    pub(super) fn comes_to_rest(&mut self, world: &World) -> (RestVerdict, BTreeSet<u32>) {
         if self.spent().is_some() {
-            return RestVerdict::Undecided(Ended::Zones);
+            return (RestVerdict::Undecided(Ended::Zones), BTreeSet::new());
         }
-        let mut zones = 0;
-        let verdict = comes_to_rest_within(&world.plant, &world.starts, &self.allowance(), &mut zones);
-        self.proof.zones += zones;
-        self.spend(zones);
-        verdict
+        let looked = comes_to_rest_within(&world.plant, &world.starts, &self.allowance());
+        self.proof.zones += looked.zones;
+        self.spend(looked.zones);
+        (looked.verdict, looked.open)
     }
 
     /// What the next exploration may keep.

@@ -75,9 +75,14 @@ impl Prover<'_> {
             window.join(states);
         }
         // without an end there is no greatest settling time; what takes exactly equal times is left out
-        let (joint, ties) = match self.comes_to_rest(&world) {
+        let (verdict, open) = self.comes_to_rest(&world);
+        let (joint, ties) = match verdict {
             RestVerdict::Always => (true, false),
-            RestVerdict::Cycles(cycles) if cycles.iter().all(|cycle| cycle.needs_ties == Some(true)) => (false, true),
+            RestVerdict::Cycles(cycles)
+                if open.is_empty() && cycles.iter().all(|cycle| cycle.needs_ties == Some(true)) =>
+            {
+                (false, true)
+            }
             RestVerdict::Cycles(_) | RestVerdict::Undecided(_) => {
                 windows.iter_mut().for_each(|window| window.settling = Some(None));
                 return Ok(());
