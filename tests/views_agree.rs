@@ -38,7 +38,8 @@ fn sweeps_settle_only_where_the_delay_free_view_leads() {
             scenario.plan.samples = 40;
             let program = Program::with_rest(&scenario, &case.rest);
             let control = Control::default();
-            match review::review(&scenario, &program, 1, &control) {
+            // runs are held against proofs in `bounded_simulated`
+            match review::review_proving(&scenario, &program, 0, 1, &control) {
                 Err(ReviewError::Contradiction(what)) => panic!("{}: {what}", case.name),
                 Err(ReviewError::Cancelled) => unreachable!("nobody cancels"),
                 Ok(review) => {
