@@ -156,8 +156,9 @@ impl Envelope {
                 let each = cell.slots.chunks(VALUES).map(|it| it.iter().map(|slot| slot.count));
                 let mut all = each.map(|counts| counts.fold(Some(0u64), |sum, count| sum?.checked_add(count)));
                 let last = all.try_fold(window.named, |most, count| count.filter(|count| *count <= most));
-                last.is_some_and(|last| cell.more <= last && (cell.more == 0 || cell.slots.len() == self.edges * VALUES))
-                    && cell.slots.iter().all(|slot| slot.latest <= Time::END.fs())
+                last.is_some_and(|last| {
+                    cell.more <= last && (cell.more == 0 || cell.slots.len() == self.edges * VALUES)
+                }) && cell.slots.iter().all(|slot| slot.latest <= Time::END.fs())
             })
         })
     }

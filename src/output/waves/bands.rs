@@ -99,18 +99,22 @@ impl Bands {
         let changes = front.trace.by_net(scenario.circuit.net_count());
         let mut nets = vec![Vec::new(); scenario.circuit.net_count()];
         let mut unsaid = Unsaid::default();
+        let mut shown = vec![false; sweep.windows.len()];
         for (i, window) in windows.iter().enumerate() {
             let next = windows.get(i + 1).map(|next| next.start);
             let Some(report) = sweep.windows.get(window.moment as usize) else { continue };
+            shown[window.moment as usize] = true;
             unsaid.look(scenario, envelope, window, report, sweep.samples);
+            if window.moment as usize >= envelope.moments() {
+                continue;
+            }
             for net in scenario.circuit.nets() {
                 let own = Own { scenario, window, report, changes: &changes[net.index()], next };
                 let late = own.add(envelope.of(window.moment, net), &mut nets[net.index()]);
                 unsaid.late(scenario, window, late);
             }
         }
-        let shown = |moment: usize| windows.iter().any(|window| window.moment as usize == moment);
-        let absent = sweep.windows.iter().filter(|it| it.named > 0 && !shown(it.moment as usize));
+        let absent = sweep.windows.iter().filter(|it| it.named > 0 && !shown[it.moment as usize]);
         unsaid.absent.extend(absent.filter_map(|it| words::step(scenario, Some(it.moment))));
         Some(Bands { nets, notes: unsaid.notes(envelope, sweep.samples) })
     }
@@ -177,7 +181,8 @@ impl Own<'_> {
             let (first, last) = (start + group[0].earliest, (start + latest).min(end));
             // an edge that comes at one time alone, and in this run as well, is no band
             let always = group.len() == 1 && group[0].samples == self.report.named;
-            let certain = always && first == last && self.changes.binary_search_by_key(&first, |change| change.0).is_ok();
+            let certain =
+                always && first == last && self.changes.binary_search_by_key(&first, |change| change.0).is_ok();
             if first > end || certain {
                 continue;
             }
@@ -252,7 +257,7 @@ impl<'a> Unsaid<'a> {
         add(&mut self.fewer, report.named < samples);
         let kept = (window.moment as usize) < envelope.moments();
         add(&mut self.beyond, !kept);
-        add(&mut self.more, scenario.circuit.nets().any(|net| envelope.more(window.moment, net) > 0));
+        add(&mut self.more, kept && scenario.circuit.nets().any(|net| envelope.more(window.moment, net) > 0));
     }
 
     fn late(&mut self, scenario: &'a Scenario, window: &Window, late: bool) {
@@ -263,17 +268,21 @@ impl<'a> Unsaid<'a> {
     }
 
     fn notes(&self, envelope: &Envelope, samples: u64) -> Vec<String> {
-        let list = |steps: &[&str]| words::some_names(steps, NAMED);
+        let list = |steps: &[&str]| words::labels(steps, NAMED);
         let samples = words::many(samples, "sample");
         let mut notes = vec![format!(
-            "Grey bands: where nets change in some of {samples}, counted from the step. An edge without a band comes then in all."
+            "Grey bands: where nets change in some of {samples}, counted from the step. An edge without a band comes at that time in all."
         )];
-        if !self.otherwise.is_empty() {
-            let steps = list(&self.otherwise);
-            notes.push(format!("Levels behind bands are of this run alone: some samples end otherwise after {steps}."));
-        }
+        let levels = "The line is this run alone";
+        notes.push(match self.otherwise.as_slice() {
+            [] => format!("{levels}."),
+            steps => format!("{levels}: some samples end in another state, or otherwise, after {}.", list(steps)),
+        });
         if !self.fewer.is_empty() {
-            notes.push(format!("Not every sample has a window of {}: its bands are of those that have.", list(&self.fewer)));
+            notes.push(format!(
+                "Not every sample has a window of {}: its bands are of those that have.",
+                list(&self.fewer)
+            ));
         }
         if !self.more.is_empty() {
             let (most, steps) = (words::many(envelope.edges() as u64, "edge"), list(&self.more));
@@ -284,7 +293,10 @@ impl<'a> Unsaid<'a> {
             notes.push(format!("No bands for want of space, with so many nets and steps: {steps}."));
         }
         if !self.late.is_empty() {
-            notes.push(format!("Bands end at the next step of this run; some samples go on longer after {}.", list(&self.late)));
+            notes.push(format!(
+                "Bands end at the next step of this run; some samples go on longer after {}.",
+                list(&self.late)
+            ));
         }
         if !self.absent.is_empty() {
             notes.push(format!("Not shown: {}, which samples have and this run has not.", list(&self.absent)));

@@ -1,10 +1,10 @@
 //! What a sheet says beside the drawing: title, description, notes, key of steps.
 
-use super::{Nets, Picture};
 use super::axis::Axis;
 use super::behind::Behind;
 use super::frame::{Lane, MARGIN, WIDTH};
 use super::marks::{Spot, Step};
+use super::{Nets, Picture};
 use crate::circuit::NetId;
 use crate::output::ink::SMALL;
 use crate::output::measure::cut_end;
@@ -135,8 +135,11 @@ pub(super) fn key(picture: &Picture<'_>, steps: &[Step]) -> Vec<String> {
 pub(super) fn title(picture: &Picture<'_>, sheet: (usize, usize)) -> String {
     let mut runs: Vec<String> = picture.runs().map(|run| words::delays(&run.which)).collect();
     runs.extend(picture.laid().map(|run| words::delays(&run.which)));
-    if runs.len() > 1 {
-        runs[1..].iter_mut().for_each(|run| run.insert_str(0, "dashed "));
+    if let [front, others @ ..] = runs.as_mut_slice()
+        && !others.is_empty()
+    {
+        front.push_str(" (solid)");
+        others.iter_mut().for_each(|run| run.push_str(" (dashed)"));
     }
     let sheet = if sheet.1 > 1 { format!(" (sheet {} of {})", sheet.0 + 1, sheet.1) } else { String::new() };
     let runs = if runs.is_empty() { String::new() } else { format!(": {}", runs.join(", ")) };

@@ -139,7 +139,8 @@ impl Frame {
 
         let mut missing = false;
         let last = last_window(front, range.1);
-        let lanes = Lanes::new(picture, nets, &Given { range, axis: &axis, left, spots: &spots, last, behind }, lanes_top);
+        let lanes =
+            Lanes::new(picture, nets, &Given { range, axis: &axis, left, spots: &spots, last, behind }, lanes_top);
         missing |= lanes.missing;
         let others: Vec<&Spot> = spots.iter().filter(|spot| spot.net.is_none()).collect();
         let mut y = lanes.end;

@@ -44,14 +44,21 @@ impl Laid {
         let scenario = picture.scenario;
         let (steps, own) = (&front.trace.windows, &run.trace.windows);
         let mut pieces = Vec::with_capacity(steps.len() + 1);
-        let mut missing = Vec::new();
+        let (mut missing, mut otherwise) = (Vec::new(), Vec::new());
         pieces.push(Piece { from: Time::ZERO, to: steps.first().map(|first| first.start), window: None });
         // the piece that each window of the run fills
         let mut fills: Vec<Option<u32>> = vec![None; own.len()];
+        let mut named: Vec<Option<usize>> = vec![None; scenario.stimulus.moments.len()];
+        for (i, window) in own.iter().enumerate() {
+            named[window.moment as usize] = Some(i);
+        }
         for (i, window) in steps.iter().enumerate() {
             let to = steps.get(i + 1).map(|next| next.start);
-            match own.iter().position(|it| it.moment == window.moment) {
+            match named[window.moment as usize] {
                 Some(found) => {
+                    if own[found].before != window.before {
+                        otherwise.extend(words::step(scenario, Some(window.moment)));
+                    }
                     fills[found] = Some(pieces.len() as u32);
                     pieces.push(Piece { from: window.start, to, window: Some(found) });
                 }
@@ -73,13 +80,19 @@ impl Laid {
         }
         let case = words::delays(&run.which);
         let mut notes = vec![format!("Thin dashed lines: {case}, each step laid on that of the run in front.")];
+        if !otherwise.is_empty() {
+            let steps = words::labels(&otherwise, NAMED);
+            notes.push(format!("The two runs come to {steps} in different states."));
+        }
         if !missing.is_empty() {
-            let steps = words::some_names(&missing, NAMED);
+            let steps = words::labels(&missing, NAMED);
             notes.push(format!("Not dashed: {case} had no window of {steps}."));
         }
         if late > 0 {
             let late = words::many(late, "dashed edge");
-            notes.push(format!("Not drawn: {late} that came longer after the step than the next step of the run in front."));
+            notes.push(format!(
+                "Not drawn: {late} that came longer after the step than the next step of the run in front."
+            ));
         }
         if run.trace.cut.is_some() {
             notes.push(format!("Of {case} only the beginning was kept."));
