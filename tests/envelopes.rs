@@ -233,7 +233,7 @@ fn forged_envelopes_are_refused() {
         ("/edges", serde_json::json!(65)),
         ("/edges", serde_json::json!(0)),
         ("/nets", serde_json::json!(u64::MAX)),
-        ("/moments", serde_json::json!(1 << 40)),
+        ("/moments", serde_json::json!(1u64 << 40)),
         ("/seen/0/0", serde_json::json!(2)),
         ("/seen/1/1", serde_json::json!(192)),
         ("/seen/0/2", serde_json::json!(0)),
