@@ -154,7 +154,7 @@ impl Envelope {
         self.cells.chunks(self.nets.max(1)).zip(windows).all(|(cells, window)| {
             cells.iter().all(|cell| {
                 let each = cell.slots.chunks(VALUES).map(|it| it.iter().map(|slot| slot.count));
-                let mut all = each.map(|counts| counts.fold(Some(0u64), |sum, count| sum?.checked_add(count)));
+                let mut all = each.map(|mut counts| counts.try_fold(0, u64::checked_add));
                 let last = all.try_fold(window.named, |most, count| count.filter(|count| *count <= most));
                 last.is_some_and(|last| {
                     cell.more <= last && (cell.more == 0 || cell.slots.len() == self.edges * VALUES)
