@@ -1,0 +1,76 @@
+//! Texts fit the terminal, from 60 columns on, and say the same however wide it is.
+
+use std::collections::BTreeMap;
+use std::path::Path;
+
+use stillgate::control::Control;
+use stillgate::engine::Program;
+use stillgate::findings::Asked;
+use stillgate::instance::Which;
+use stillgate::output::text::{self, Page};
+use stillgate::proof::Spend;
+use stillgate::review;
+
+/// Letters and digits of a text, counted.
+fn letters(text: &str) -> BTreeMap<char, usize> {
+    let mut counts = BTreeMap::new();
+    text.chars().filter(|c| c.is_alphanumeric()).for_each(|c| *counts.entry(c).or_default() += 1);
+    counts
+}
+
+#[test]
+fn every_text_of_every_demonstration_fits_and_loses_nothing() {
+    let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("scenarios");
+    let (mut texts, mut commands) = (0, 0);
+    let mut wrong = String::new();
+    for entry in std::fs::read_dir(folder).unwrap() {
+        let path = entry.unwrap().path();
+        let name = format!("scenarios/{}", path.file_name().unwrap().to_string_lossy());
+        let mut scenario = stillgate::reader::load(&path).unwrap().scenario;
+        scenario.plan.samples = 200;
+        scenario.plan.search = 50;
+        let control = Control::default();
+        let program = Program::new(&scenario, &control).unwrap();
+        let asked = Asked::of(&scenario);
+        let review = review::review(&scenario, &program, 1, &control).unwrap();
+        let run = review::run_one(&scenario, &program, &asked, Which::Typ, &control).unwrap();
+        let spend =
+            Spend { zones: 2000, total: Some(20_000), bytes: 1 << 28, time: None, margins: false, padding: false };
+        let proof = stillgate::proof::prove(&scenario, &program, &asked, &spend, &control);
+        let files = proof.witness_files();
+        let verdict = review::verdict(&scenario, &review.sweep);
+        let all = |width: usize| {
+            let page = Page { width, scenario: Some(&name), folder: "stillgate-out/block", ..Page::default() };
+            [
+                ("check", text::check(&scenario, &page)),
+                ("states", text::states(&scenario, &review.states, &page)),
+                ("run", text::run(&scenario, &asked, &run, &page)),
+                ("sweep", text::sweep(&scenario, &asked, &review.sweep, &verdict, &page)),
+                ("review", text::review(&scenario, &review, &page)),
+                ("prove", text::prove(&scenario, &asked, &proof, &files, &page)),
+            ]
+        };
+        let wide = all(100);
+        for width in [60, 80, 100] {
+            for ((command, text), (_, widest)) in all(width).iter().zip(&wide) {
+                texts += 1;
+                for line in text.lines().filter(|line| line.chars().count() > width) {
+                    // a command stays whole, to be copied
+                    if line.trim_start().starts_with("stillgate ") {
+                        commands += 1;
+                    } else {
+                        wrong += &format!("{name} {command} at {width}: {line}\n");
+                    }
+                }
+                let (narrow, wide) = (letters(text), letters(widest));
+                let lost: Vec<_> = wide.iter().filter(|(c, n)| narrow.get(c).unwrap_or(&0) < n).collect();
+                if !lost.is_empty() || (text.contains('…') && !widest.contains('…')) {
+                    wrong += &format!("{name} {command} at {width} loses {lost:?}:\n{text}\n---\n{widest}\n");
+                }
+            }
+        }
+    }
+    assert!(wrong.is_empty(), "{wrong}");
+    assert!(texts >= 18 * 6 * 3, "{texts}");
+    assert!((1..500).contains(&commands), "{commands} commands are longer than a line");
+}
