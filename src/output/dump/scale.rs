@@ -30,7 +30,7 @@ impl Tick {
 
     /// The coarsest tick, not above this one, of which the time is a whole number.
     fn holding(mut self, time: Time) -> Tick {
-        while time.fs() % 10u64.pow(self.exponent) != 0 {
+        while !time.fs().is_multiple_of(10u64.pow(self.exponent)) {
             self.exponent -= 1;
         }
         self
@@ -54,7 +54,7 @@ impl Tick {
     /// The time in ticks; `None` if that is no whole number.
     pub fn count(self, time: Time) -> Option<u64> {
         let one = 10u64.pow(self.exponent);
-        (time.fs() % one == 0).then(|| time.fs() / one)
+        time.fs().is_multiple_of(one).then(|| time.fs() / one)
     }
 }
 
