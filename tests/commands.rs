@@ -47,6 +47,7 @@ fn the_main_job_on_the_demonstration_leaves_its_files() {
         "result.json",
         "waves-typical.svg",
         "waves-typical.csv",
+        "waves-typical.vcd",
         "settling.svg",
         "settling.csv",
         "outcomes.csv",
@@ -203,6 +204,53 @@ fn every_command_answers_in_json_and_in_text() {
             assert!(!said.contains(word), "{command} says {word}: {said}");
         }
         assert!(stillgate(folder.path(), &[command, &path, "--quiet"]).stdout.is_empty(), "{command} --quiet");
+    }
+}
+
+#[test]
+fn completions_and_manual_know_every_command_and_option() {
+    let folder = tempfile::tempdir().unwrap();
+    let said = |arguments: &[&str]| {
+        let output = stillgate(folder.path(), arguments);
+        assert!(output.status.success(), "{arguments:?}: {}", text(&output.stderr));
+        text(&output.stdout)
+    };
+    let commands = ["review", "run", "sweep", "merge", "limit", "states", "prove", "check", "completions", "manual"];
+    for shell in ["bash", "zsh", "fish", "elvish", "powershell"] {
+        let script = said(&["completions", shell]);
+        for word in commands.iter().chain(&["proof-zones", "keep-every", "to-within"]) {
+            assert!(script.contains(word), "{shell} lacks {word}");
+        }
+    }
+    let page = said(&["manual"]);
+    assert!(page.contains(".TH stillgate 1") && commands.iter().all(|it| page.contains(it)), "{page}");
+    for command in commands {
+        let page = said(&["manual", command]);
+        assert!(page.contains(&format!(".TH stillgate-{command} 1")), "{page}");
+    }
+    assert!(said(&["manual", "review"]).contains("proof\\-zones"));
+    let output = stillgate(folder.path(), &["manual", "revew"]);
+    assert_eq!(output.status.code(), Some(2));
+    assert!(text(&output.stderr).contains("did you mean `review`?"));
+    assert_eq!(stillgate(folder.path(), &["completions", "tcsh"]).status.code(), Some(2));
+}
+
+#[test]
+fn every_command_can_be_quiet() {
+    let folder = tempfile::tempdir().unwrap();
+    let selector = project("scenarios/selector.toml");
+    for arguments in [
+        &["review", "--samples", "50", "--search", "50"][..],
+        &["sweep", "--samples", "50"],
+        &["run"],
+        &["limit", "--samples", "20", "--of", "spacing", "all", "--points", "3"],
+        &["prove"],
+        &["states"],
+        &["check"],
+    ] {
+        let output = stillgate(folder.path(), &[arguments, &[selector.as_str(), "--quiet"]].concat());
+        assert!(output.status.success(), "{arguments:?}: {}", text(&output.stderr));
+        assert!(output.stdout.is_empty() && output.stderr.is_empty(), "{arguments:?}: {}", text(&output.stderr));
     }
 }
 

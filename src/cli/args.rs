@@ -42,6 +42,20 @@ pub enum Command {
     Prove(Proving),
     /// Reads the scenario, reports errors, prints what it understood
     Check(Checking),
+    /// Prints a script that completes commands and options in a shell
+    ///
+    /// For bash, for example: `stillgate completions bash > ~/.local/share/bash-completion/completions/stillgate`
+    Completions {
+        /// For which shell
+        shell: clap_complete::Shell,
+    },
+    /// Prints the manual page of the program, or of one of its commands
+    ///
+    /// It is made of the same definitions as --help. To read it: `stillgate manual | man -l -`
+    Manual {
+        /// A command, as in `stillgate manual review`; without it the page of the program
+        command: Option<String>,
+    },
 }
 
 #[derive(Debug, Args)]

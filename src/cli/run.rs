@@ -6,14 +6,15 @@ use std::sync::atomic::Ordering;
 
 use super::args::Running;
 use super::common::{
-    Failure, called, control, finish, folder, load, options, overrides, page, program, say, say_aside, with_draws,
-    write,
+    Failure, Meter, called, control, finish, folder, load, options, overrides, page, program, say, say_aside,
+    with_draws, write,
 };
 use crate::circuit::NetId;
 use crate::delay::Marginal;
 use crate::findings::Asked;
 use crate::instance::{Instance, PERTURBATIONS, Which};
 use crate::output::bundle::WriteError;
+use crate::output::dump::{LongDump, Tick, coarsen};
 use crate::output::instance::write_instance;
 use crate::output::stream::Stream;
 use crate::output::waves::Overflow;
@@ -32,24 +33,36 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     let against = arguments.against.as_deref().map(|case| self::which("--against", case, &scenario)).transpose()?;
     let nets = nets(&arguments.nets, &scenario)?;
     let folder = folder(input, &arguments.folder)?;
-    let (control, bar) = control(true, "run");
+    let (control, bar) = control(input.quiet, "run");
     let program = program(&scenario, &control)?;
     let asked = Asked::of(&scenario);
     // a run that is too long to be kept writes its transitions as they come
     let table = folder.join(format!("changes-{}.csv", bundle::safe(&which.words())));
     let give_up = || control.cancel.store(true, Ordering::Relaxed);
     let overflow = Overflow::new(&scenario, review::MOST_KEPT as usize, || Stream::open(&table), &give_up);
-    let (report, overflow) = review::run_heard(&scenario, &program, &asked, which, &control, overflow);
+    let (place, words) = (folder.join(format!("waves-{}.vcd", bundle::safe(&which.words()))), which.words());
+    let dump = LongDump::new(&scenario, &words, review::MOST_KEPT as usize, || Stream::open(&place), &give_up);
+    let heard = ((overflow, dump), Meter::new(bar.as_ref()));
+    let (report, ((overflow, dump), _)) = review::run_heard(&scenario, &program, &asked, which, &control, heard);
     finish(bar);
     let too_wide = report.as_ref().is_some_and(|report| bundle::table_fits(&scenario, report).is_err());
     let unwritten = |source| WriteError::File { file: table.clone(), source };
     let changes = overflow.finish(too_wide).map_err(unwritten)?;
+    let cut = report.as_ref().is_some_and(|report| report.trace.cut.is_some());
+    let unwritten = |source| WriteError::File { file: place.clone(), source };
+    let dump = dump.finish(cut).map_err(unwritten)?;
     let report = report.ok_or(Failure::Interrupted)?;
     let other = against.map(|case| review::run_one(&scenario, &program, &asked, case, &control));
     let other = match other {
         Some(None) => return Err(Failure::Interrupted),
         Some(other) => other,
         None => None,
+    };
+    let dump = match dump {
+        Some((stream, tick)) if tick > Tick::FINEST => {
+            Some(stream.again(|from, to| coarsen(from, tick, to)).map_err(unwritten)?)
+        }
+        other => other.map(|(stream, _)| stream),
     };
     let document = json::run(&scenario, &asked, &report);
     if input.json {
@@ -75,6 +88,12 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
         stream.keep()?;
         if !quiet {
             say_aside(&format!("{}: all transitions, {rows}\n", table.display()));
+        }
+    }
+    if let Some(stream) = dump {
+        stream.keep()?;
+        if !quiet {
+            say_aside(&format!("{}: all transitions\n", place.display()));
         }
     }
     let broken = report.facts.iter().any(|fact| fact.breaks_rule);

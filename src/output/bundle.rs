@@ -11,7 +11,7 @@ use crate::output::flow_map::{self, Map};
 use crate::output::instance::write_instance;
 use crate::output::search::case_files;
 use crate::output::waves::{self, Nets, Picture};
-use crate::output::{causes, charts, convergence, flow_tables, json, tables, words};
+use crate::output::{causes, charts, convergence, dump, flow_tables, json, tables, words};
 use crate::proof::Proof;
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
@@ -82,7 +82,8 @@ impl Bundle {
         }
     }
 
-    /// Sheets as `stem.svg`, `stem-2.svg`, …, and the table of all nets as `stem.csv`.
+    /// Sheets as `stem.svg`, `stem-2.svg`, …, the table of all nets as `stem.csv`, and their dump as `stem.vcd`, if the run
+    /// was kept whole.
     fn add_waves(&mut self, stem: &str, picture: &Picture<'_>, run: &RunReport) {
         self.add_sheets(stem, picture);
         if let Some(cut) = run.trace.cut {
@@ -94,6 +95,21 @@ impl Bundle {
             self.notes.push(format!("{stem}.csv is left out: it would have {} cells.", words::count(cells)));
         } else {
             self.add(&format!("{stem}.csv"), waves::csv(picture.scenario, &run.trace));
+        }
+        if run.trace.cut.is_none() {
+            self.add(&format!("{stem}.vcd"), dump::vcd(picture.scenario, &run.which.words(), &run.trace));
+        }
+    }
+}
+
+impl Bundle {
+    /// Says so where a run was too long for its dump.
+    fn note_dump(&mut self, stem: &str, run: &RunReport) {
+        if run.trace.cut.is_some() {
+            let case = run.which.key();
+            self.notes.push(format!(
+                "{stem}.vcd is left out: the run is too long to be kept; run --delays {case} writes it."
+            ));
         }
     }
 
@@ -120,7 +136,7 @@ pub fn table_fits(scenario: &Scenario, run: &RunReport) -> Result<(), u64> {
     if cells > MOST_CELLS || run.trace.cut.is_some() { Err(cells) } else { Ok(()) }
 }
 
-/// The files of one run: `waves-<case>.svg`, one a sheet, and `waves-<case>.csv`; with another run also
+/// The files of one run: `waves-<case>.svg`, one a sheet, `waves-<case>.csv` and `waves-<case>.vcd`; with another run also
 /// `waves-<case>-against-<other>.svg`, in which that lies behind. `nets` chooses lanes and their order in place of the
 /// scenario.
 pub fn of_run(
@@ -186,6 +202,7 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     if let Some(run) = &review.typical {
         let picture = Picture::of_run(scenario, &review.asked, run, "waves-typical").with_bands(&review.sweep);
         bundle.add_waves("waves-typical", &picture, run);
+        bundle.note_dump("waves-typical", run);
     }
     let mut stems = BTreeSet::from(["waves-typical".to_string()]);
     let mut shown: Vec<&(usize, RunReport)> =
@@ -206,6 +223,7 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
             picture = picture.against(typical);
         }
         bundle.add_waves(&stem, &picture, run);
+        bundle.note_dump(&stem, run);
     }
     let all = review.sweep.findings.len();
     if shown.len() < all {

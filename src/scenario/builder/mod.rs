@@ -166,6 +166,12 @@ impl Builder {
         self
     }
 
+    /// Another value before the first step, for an input that was told.
+    pub fn input_begins(&mut self, name: &str, value: bool) -> &mut Builder {
+        self.inputs.iter_mut().filter(|(input, _)| input.what == name).for_each(|(_, before)| *before = value);
+        self
+    }
+
     /// A gate, which drives the net of its name. Gates keep the order of these calls; pins may name gates to come.
     pub fn gate<P: Into<Said<String>>>(
         &mut self,
