@@ -272,8 +272,15 @@ fn the_scenario_in_the_readme_is_a_good_one() {
     let output = stillgate(folder.path(), &["review", "latch.toml", "--samples", "500", "--strict"]);
     assert!(output.status.success(), "{}{}", text(&output.stdout), text(&output.stderr));
     assert!(text(&output.stdout).starts_with("Proved for every delay in the ranges; no failure found in 500 draws"));
-    // every document that it links to is there
+    // every document that it links to is there, and the heading within it
     for link in readme.split("](").skip(1).filter_map(|rest| rest.split(')').next()) {
-        assert!(Path::new(&project(link)).exists(), "the README links to {link}");
+        let (file, heading) = link.split_once('#').unwrap_or((link, ""));
+        assert!(Path::new(&project(file)).exists(), "the README links to {link}");
+        if !heading.is_empty() {
+            let document = std::fs::read_to_string(project(file)).unwrap();
+            let name = |line: &str| line.trim_start_matches('#').trim().to_lowercase().replace(' ', "-");
+            let mut headings = document.lines().filter(|line| line.starts_with('#'));
+            assert!(headings.any(|line| name(line) == heading), "the README links to {link}");
+        }
     }
 }
