@@ -39,6 +39,7 @@ mod races;
 mod scale;
 mod searches;
 mod settling_bounds;
+mod shown_pictures;
 mod support;
 mod sweeps_agree;
 mod ties;

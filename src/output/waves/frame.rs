@@ -169,7 +169,11 @@ impl Frame {
             behind,
             axis: &axis,
         };
-        let notes = captions::notes(picture, &seen);
+        let mut notes = captions::notes(picture, &seen);
+        let chains = arrows::chains(picture, &lanes.lanes, &axis, range);
+        if chains.iter().any(|chain| chain.goes_back) {
+            notes.push(format!("Of a long path the last {} arrows are drawn.", arrows::MOST));
+        }
         let key = if flags.numbered { captions::key(picture, &steps) } else { Vec::new() };
         let notes_y = y + 8.0 + LINE;
         y += if notes.is_empty() { 0.0 } else { 8.0 + notes.len() as f64 * LINE };
@@ -179,7 +183,6 @@ impl Frame {
         let full_title = captions::title(picture, sheet);
         // bold letters are wider than the estimate
         let cut = cut_end(&full_title, 14.0, (WIDTH - 2.0 * MARGIN) / 1.15);
-        let chains = arrows::chains(picture, &lanes.lanes, &axis, range);
         Frame {
             title: cut.unwrap_or_else(|| full_title.clone()),
             full_title,
