@@ -27,6 +27,7 @@ mod malformed;
 mod margins;
 mod outcomes_agree;
 mod outside;
+mod pages;
 mod paddings;
 mod parts;
 mod paths;
