@@ -36,7 +36,7 @@ pub(super) fn section(told: &Told<'_>) -> Markup {
     let table = Table {
         id: "rules-table",
         caption: "Rules. Steps at which a rule came out alike share a row, with the smallest margin of them; rules.csv has each. \
-                  Counts are of draws; a margin is the worst slack seen, negative where the rule is broken",
+                  Counts are of draws, added up over the steps of a row; a margin is the worst slack seen, negative where the rule is broken",
         head: vec![
             ("rule", false),
             ("step", false),

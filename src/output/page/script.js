@@ -29,7 +29,7 @@
 
   const line = element("g", { id: "slider-cursor", visibility: "hidden" });
   line.append(
-    element("path", { d: "M0 0", stroke: "#ffffff", "stroke-width": "5", fill: "none" }),
+    element("path", { d: "M0 0", stroke: "#ffffff", "stroke-width": "4", "stroke-opacity": "0.7", fill: "none" }),
     element("path", { d: "M0 0", stroke: "#7a3fa0", "stroke-width": "2", fill: "none" }),
     element("path", { d: "M0 0", fill: "#7a3fa0" })
   );
@@ -66,12 +66,12 @@
     run = data.runs[number];
     choice.value = String(number);
     slider.max = String(run.at.length - 1);
-    slider.value = "0";
     stage(byId("slider-waves"), run.id, run.size, line);
     const cut = byId("slider-cut");
     cut.hidden = !run.cut;
     cut.textContent = run.cut || "";
-    show(0);
+    // a picture of a part of the run: begin with that part
+    show(Math.max(0, run.at.findIndex((time) => pixel(Number(time)) !== null)));
   }
 
   function show(instant) {
