@@ -262,45 +262,59 @@ fn the_same_bytes_for_any_number_of_threads() {
     assert!(one == page(3), "threads change a byte");
 }
 
-/// Names that would open elements, end scripts or run out of the page.
+/// Titles, labels and names of rules and conditions that would open elements or end scripts, and a net name of 200 letters.
 #[test]
 fn hostile_names_are_only_names() {
     let long = "gauge_".repeat(33) + "ab";
     assert_eq!(long.len(), 200);
-    let names = ["</script><b>", "<!--", "&amp;", "\"quoted\" 'too'", "]]>", &long];
-    let key = |name: &str| format!("{name:?}");
-    let mut file =
-        format!("title = {}\noutputs = [{}]\n[inputs]\n", key("</title><script>alert(1)</script>"), key(&long));
-    file += "set_not = 1\nreset_not = 1\n[initial]\n";
-    file += &format!("{} = 0\n[gates]\n", key(names[0]));
-    let gates = [
-        (names[0], format!("{{ nand = [\"set_not\", {}] }}", key(names[1]))),
-        (names[1], format!("{{ nand = [\"reset_not\", {}] }}", key(names[0]))),
-        (names[2], format!("{{ not = [{}] }}", key(names[0]))),
-        (names[3], format!("{{ nand = [{}, {}] }}", key(names[2]), key(names[0]))),
-        (names[4], format!("{{ buf = [{}] }}", key(names[3]))),
-        (names[5], format!("{{ not = [{}] }}", key(names[4]))),
-    ];
-    for (name, gate) in &gates {
-        file += &format!("{} = {gate}\n", key(name));
-    }
-    file += "[delays]\ndelay = [5, 8, 13]\n[[steps]]\nlabel = \"<img onerror=x> & \\\"step\\\"\"\nat = 100\n";
-    file += "set = { set_not = 0 }\n[rules]\nsettle_within = 12\n";
+    let file = format!(
+        r#"
+title = "</title><script>alert(1)</script>"
+outputs = ["{long}"]
+[inputs]
+set_not = 1
+reset_not = 1
+[initial]
+"q.a[0]" = 0
+[gates]
+"q.a[0]" = {{ nand = ["set_not", "{long}"] }}
+{long} = {{ nand = ["reset_not", "q.a[0]"] }}
+[delays]
+delay = [5, 8, 13]
+[[steps]]
+label = "</script><b> & 'one'"
+at = 100
+set = {{ set_not = 0 }}
+[[steps]]
+label = "<!-- \"two\""
+after = 100
+set = {{ set_not = 1 }}
+[rules]
+settle_within = 12
+[[rules.never]]
+name = "<img onerror=alert(2)> &amp; ]]>"
+state = {{ "q.a[0]" = 1, {long} = 0 }}
+[conditions."<i>hot</i>"]
+scale = 1.2
+"#
+    );
     let scenario = read(&file, "hostile", 40);
     let review = reviewed(&scenario, 1);
-    assert!(!review.sweep.findings.is_empty(), "there is a finding to name them");
+    assert!(review.sweep.findings.iter().any(|finding| finding.breaks_rule), "there is a finding to name them");
     let page = page::report(&scenario, &review, &told("hostile"));
     check("hostile", &page, &review, &scenario);
     let html = Html::parse_document(&page);
     assert_eq!(all(&html, "script").len(), 2, "no script but the page's own");
-    assert!(all(&html, "b, img").is_empty(), "a name has become an element");
-    let nets: Value = serde_json::from_str(&text(all(&html, "#runs")[0])).unwrap();
-    for name in names {
-        assert!(nets["nets"].as_array().unwrap().iter().any(|it| it == name), "{name}");
+    assert!(all(&html, "b, i, img").is_empty(), "a name has become an element");
+    let data: Value = serde_json::from_str(&text(all(&html, "#runs")[0])).unwrap();
+    assert!(data["nets"].as_array().unwrap().iter().any(|it| it == &long));
+    assert_eq!(text(all(&html, "title")[0]), "</title><script>alert(1)</script>: review");
+    let told = text(all(&html, "main")[0]);
+    for name in ["</script><b> & 'one'", "<!-- \"two\"", "<img onerror=alert(2)> &amp; ]]>", "<i>hot</i>", &long] {
+        assert!(told.contains(name), "{name} is told as it is written");
     }
-    let title = text(all(&html, "title")[0]);
-    assert_eq!(title, "</title><script>alert(1)</script>: review");
-    assert!(page.contains("overflow-wrap: anywhere"), "long names are broken, not run out of the page");
+    let style = text(all(&html, "style")[0]);
+    assert!(style.contains("overflow-wrap: anywhere"), "long names are broken, they do not run out of the page");
 }
 
 /// A long run is cut in the data of the slider, and the page says so.
