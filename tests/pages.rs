@@ -320,13 +320,16 @@ scale = 1.2
 /// A long run is cut in the data of the slider, and the page says so.
 #[test]
 fn long_runs_are_cut_and_said_to_be() {
-    let mut file = "title = \"Bell\"\noutputs = [\"bell\"]\n[inputs]\ntick = 0\n[gates]\nbell = { buf = [\"tick\"] }\n"
-        .to_string();
+    let mut file = "title = \"Bells\"\noutputs = [\"bell_0\"]\n[inputs]\ntick = 0\n[gates]\n".to_string();
+    for bell in 0..9 {
+        file += &format!("bell_{bell} = {{ buf = [\"tick\"] }}\n");
+    }
     file +=
-        "[delays]\ndelay = [1, 2, 3]\n[[clocks]]\nnet = \"tick\"\nfirst = 10\nperiod = 20\nhigh = 10\ncount = 6000\n";
-    let scenario = read(&file, "bell", 2);
-    let review = reviewed(&scenario, 1);
-    let page = page::report(&scenario, &review, &told("bell"));
+        "[delays]\ndelay = [1, 2, 3]\n[[clocks]]\nnet = \"tick\"\nfirst = 10\nperiod = 20\nhigh = 10\ncount = 1200\n";
+    let scenario = read(&file, "bells", 2);
+    let program = Program::new(&scenario, &Control::default()).unwrap();
+    let review = review::review_proving(&scenario, &program, 0, 1, &Control::default()).unwrap();
+    let page = page::report(&scenario, &review, &told("bells"));
     let html = Html::parse_document(&page);
     let data: Value = serde_json::from_str(&text(all(&html, "#runs")[0])).unwrap();
     let run = &data["runs"][0];

@@ -71,9 +71,12 @@ fn filter(scenario: &Scenario, gate: GateId) -> String {
     }
 }
 
+/// Where delays come from, whether both edges take one draw, the filter; and the gates.
+type Alike = ((&'static str, bool, String), Vec<GateId>);
+
 /// Gates by where their delays came from, and by what they do with short pulses.
 fn sources(scenario: &Scenario) -> Markup {
-    let mut kinds: Vec<((&str, bool, String), Vec<GateId>)> = Vec::new();
+    let mut kinds: Vec<Alike> = Vec::new();
     for gate in scenario.circuit.gates() {
         let key = (source(scenario, gate), scenario.delays.gate_one_draw[gate.index()], filter(scenario, gate));
         match kinds.iter_mut().find(|it| it.0 == key) {
@@ -81,7 +84,7 @@ fn sources(scenario: &Scenario) -> Markup {
             None => kinds.push((key, vec![gate])),
         }
     }
-    let row = |((source, one, filter), gates): &((&str, bool, String), Vec<GateId>)| {
+    let row = |((source, one, filter), gates): &Alike| {
         vec![
             Cell::Text(names(scenario, gates)),
             Cell::Text((*source).to_string()),
