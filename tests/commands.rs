@@ -52,6 +52,7 @@ fn the_main_job_on_the_demonstration_leaves_its_files() {
         "outcomes.csv",
         "findings.csv",
         "rules.csv",
+        "envelope.csv",
         "states.svg",
         "states.csv",
         "transitions.csv",

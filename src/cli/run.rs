@@ -28,7 +28,8 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     if let Some(name) = &arguments.condition {
         scenario = under(name, &scenario)?;
     }
-    let which = which(&arguments.delays, &scenario)?;
+    let which = which("--delays", &arguments.delays, &scenario)?;
+    let against = arguments.against.as_deref().map(|case| self::which("--against", case, &scenario)).transpose()?;
     let nets = nets(&arguments.nets, &scenario)?;
     let folder = folder(input, &arguments.folder)?;
     let (control, bar) = control(true, "run");
@@ -44,6 +45,12 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
     let unwritten = |source| WriteError::File { file: table.clone(), source };
     let changes = overflow.finish(too_wide).map_err(unwritten)?;
     let report = report.ok_or(Failure::Interrupted)?;
+    let other = against.map(|case| review::run_one(&scenario, &program, &asked, case, &control));
+    let other = match other {
+        Some(None) => return Err(Failure::Interrupted),
+        Some(other) => other,
+        None => None,
+    };
     let document = json::run(&scenario, &asked, &report);
     if input.json {
         say(&document)?;
@@ -55,7 +62,7 @@ pub fn run(arguments: &Running) -> Result<ExitCode, Failure> {
             &page(called(input).as_deref(), &options(&overrides(&arguments.draws))),
         ))?;
     }
-    let mut bundle = bundle::of_run(&scenario, &asked, &report, nets);
+    let mut bundle = bundle::of_run(&scenario, &asked, &report, other.as_ref(), nets);
     let case = bundle::safe(&report.which.words());
     bundle.add(&format!("run-{case}.json"), document);
     bundle.add(&format!("case-{case}.toml"), write_instance(&report.instance, &scenario));
@@ -106,8 +113,8 @@ fn under(name: &str, scenario: &Scenario) -> Result<Scenario, Failure> {
     }
 }
 
-/// The case that `--delays` names.
-fn which(text: &str, scenario: &Scenario) -> Result<Which, Failure> {
+/// The case that `--delays` or `--against` names.
+fn which(option: &str, text: &str, scenario: &Scenario) -> Result<Which, Failure> {
     match text {
         "typ" => return Ok(Which::Typ),
         "min" => return Ok(Which::Min),
@@ -117,16 +124,16 @@ fn which(text: &str, scenario: &Scenario) -> Result<Which, Failure> {
     if let Some((case, number)) = text.rsplit_once('~')
         && (matches!(case, "typ" | "min" | "max") || case.starts_with("sample:"))
     {
-        return perturbed(text, which(case, scenario)?, number, scenario);
+        return perturbed(option, text, which(option, case, scenario)?, number, scenario);
     }
     if let Some(number) = text.strip_prefix("sample:") {
         let number = number.parse::<u64>().ok().filter(|number| *number < 1 << 62);
         let number = number.ok_or_else(|| {
-            Failure::Bad(format!("`--delays {text}` names no sample; write for example `--delays sample:12`"))
+            Failure::Bad(format!("`{option} {text}` names no sample; write for example `{option} sample:12`"))
         })?;
         let samples = scenario.plan.samples;
         if scenario.plan.draw == Marginal::Hypercube && number >= samples {
-            let message = format!("`--delays {text}`: a hypercube of {samples} draws ends with sample:{}", samples - 1);
+            let message = format!("`{option} {text}`: a hypercube of {samples} draws ends with sample:{}", samples - 1);
             return Err(Failure::Bad(message));
         }
         return Ok(Which::Sample(number));
@@ -134,7 +141,7 @@ fn which(text: &str, scenario: &Scenario) -> Result<Which, Failure> {
     let path = Path::new(text);
     if !path.exists() {
         let message = format!(
-            "`--delays {text}`: there is no such file; write typ, min, max, sample:N, one of them with ~P, or a file"
+            "`{option} {text}`: there is no such file; write typ, min, max, sample:N, one of them with ~P, or a file"
         );
         return Err(Failure::Bad(message));
     }
@@ -142,15 +149,15 @@ fn which(text: &str, scenario: &Scenario) -> Result<Which, Failure> {
 }
 
 /// A case with every time moved by single femtoseconds.
-fn perturbed(text: &str, case: Which, number: &str, scenario: &Scenario) -> Result<Which, Failure> {
+fn perturbed(option: &str, text: &str, case: Which, number: &str, scenario: &Scenario) -> Result<Which, Failure> {
     let number = number.parse::<u8>().ok().filter(|number| (1..=PERTURBATIONS).contains(number));
     let number = number.ok_or_else(|| {
         let message =
-            format!("perturbations are numbered from 1 to {PERTURBATIONS}, as in `--delays {}~1`", case.key());
-        Failure::Bad(format!("`--delays {text}`: {message}"))
+            format!("perturbations are numbered from 1 to {PERTURBATIONS}, as in `{option} {}~1`", case.key());
+        Failure::Bad(format!("`{option} {text}`: {message}"))
     })?;
     match Instance::of(scenario, &case).perturbed(scenario, number) {
         Ok(_) => Ok(Which::Perturbed(Box::new(case), number)),
-        Err(why) => Err(Failure::Bad(format!("`--delays {text}`: its times cannot be moved: {why}"))),
+        Err(why) => Err(Failure::Bad(format!("`{option} {text}`: its times cannot be moved: {why}"))),
     }
 }

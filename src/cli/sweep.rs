@@ -135,7 +135,7 @@ fn begun(arguments: &Long) -> Result<LoadedPart, Failure> {
         wanted: wanted.clone().map_or((0, plan.samples), |it| (it.start, it.end)),
         piece: wanted.is_some(),
         curve: arguments.until.clone().map(Curve::new),
-        cases: Cases::new(&scenario, &asked),
+        cases: Cases::with_envelope(&scenario, &asked),
     };
     Ok(LoadedPart { part, scenario, asked })
 }

@@ -81,15 +81,7 @@ impl Bundle {
 
     /// Sheets as `stem.svg`, `stem-2.svg`, …, and the table of all nets as `stem.csv`.
     fn add_waves(&mut self, stem: &str, picture: &Picture<'_>, run: &RunReport) {
-        let sheets = waves::sheets(picture);
-        if let Some(left_out) = sheets.first().map(|sheet| sheet.left_out.len()).filter(|n| *n > 0) {
-            let nets = words::many(left_out as u64, "net");
-            self.notes.push(format!("{stem}.svg leaves out {nets}; {stem}.csv has all of them."));
-        }
-        for (i, sheet) in sheets.into_iter().enumerate() {
-            let number = if i == 0 { String::new() } else { format!("-{}", i + 1) };
-            self.add(&format!("{stem}{number}.svg"), sheet.svg);
-        }
+        self.add_sheets(stem, picture);
         if let Some(cut) = run.trace.cut {
             let until = cut.after.from_start().rounded();
             let later = words::many(cut.transitions, "later transition");
@@ -99,6 +91,19 @@ impl Bundle {
             self.notes.push(format!("{stem}.csv is left out: it would have {} cells.", words::count(cells)));
         } else {
             self.add(&format!("{stem}.csv"), waves::csv(picture.scenario, &run.trace));
+        }
+    }
+
+    /// Sheets as `stem.svg`, `stem-2.svg`, …
+    fn add_sheets(&mut self, stem: &str, picture: &Picture<'_>) {
+        let sheets = waves::sheets(picture);
+        if let Some(left_out) = sheets.first().map(|sheet| sheet.left_out.len()).filter(|n| *n > 0) {
+            let nets = words::many(left_out as u64, "net");
+            self.notes.push(format!("{stem}.svg leaves out {nets}; the table of the run has all of them."));
+        }
+        for (i, sheet) in sheets.into_iter().enumerate() {
+            let number = if i == 0 { String::new() } else { format!("-{}", i + 1) };
+            self.add(&format!("{stem}{number}.svg"), sheet.svg);
         }
     }
 }
@@ -112,16 +117,29 @@ pub fn table_fits(scenario: &Scenario, run: &RunReport) -> Result<(), u64> {
     if cells > MOST_CELLS || run.trace.cut.is_some() { Err(cells) } else { Ok(()) }
 }
 
-/// The files of one run: `waves-<case>.svg`, one a sheet, and `waves-<case>.csv`. `nets` chooses lanes.
-pub fn of_run(scenario: &Scenario, asked: &Asked, run: &RunReport, nets: Option<Vec<NetId>>) -> Bundle {
+/// The files of one run: `waves-<case>.svg`, one a sheet, and `waves-<case>.csv`; with another run also
+/// `waves-<case>-against-<other>.svg`, in which that lies behind. `nets` chooses lanes and their order in place of the
+/// scenario.
+pub fn of_run(
+    scenario: &Scenario,
+    asked: &Asked,
+    run: &RunReport,
+    against: Option<&RunReport>,
+    nets: Option<Vec<NetId>>,
+) -> Bundle {
     let stem = format!("waves-{}", safe(&run.which.words()));
     let mut bundle = Bundle::default();
-    let nets = nets.map_or(Nets::All, Nets::These);
     // the paths of the worst finding, if it breaks a rule
     let worst = run.facts.first().filter(|fact| fact.breaks_rule);
     let race = worst.and_then(|fact| run.race(scenario, asked, fact));
-    let picture = Picture { nets, race, ..Picture::of_run(scenario, asked, run, &stem) };
+    let mut picture = Picture { race, ..Picture::of_run(scenario, asked, run, &stem) };
+    picture.nets = nets.map_or(picture.nets, Nets::These);
     bundle.add_waves(&stem, &picture, run);
+    if let Some(other) = against {
+        let beside = format!("{stem}-against-{}", safe(&other.which.words()));
+        let picture = Picture { id: beside.clone(), ..picture }.against(other);
+        bundle.add_sheets(&beside, &picture);
+    }
     bundle
 }
 
@@ -138,6 +156,13 @@ fn of_searched(scenario: &Scenario, asked: &Asked, report: &SweepReport, search:
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));
     bundle.add("findings.csv", tables::findings(scenario, asked, report));
     bundle.add("rules.csv", tables::rules(scenario, report, search));
+    if let Some(envelope) = &report.envelope {
+        bundle.add("envelope.csv", tables::envelope(scenario, report, envelope));
+        let (some, all) = (envelope.moments(), scenario.stimulus.moments.len());
+        if some < all {
+            bundle.notes.push(format!("envelope.csv has the first {some} of {all} steps and clock edges."));
+        }
+    }
     if report.stopped.is_some() {
         bundle.add("convergence.svg", convergence::svg(scenario, asked, report));
         bundle.add("convergence.csv", convergence::csv(scenario, asked, report));
@@ -193,6 +218,7 @@ pub fn of_review(scenario: &Scenario, review: &Review, told: &Page<'_>) -> Bundl
     }
     let sweep = of_searched(scenario, &review.asked, &review.sweep, review.search.as_ref());
     bundle.files.extend(sweep.files);
+    bundle.notes.extend(sweep.notes);
     bundle.files.extend(of_states(scenario, &review.states).files);
     bundle
 }

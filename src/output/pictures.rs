@@ -28,13 +28,13 @@ pub(super) struct Shown<'a> {
     pub picture: Picture<'a>,
 }
 
-/// The typical run.
+/// The typical run, with may-change bands.
 pub(super) fn typical<'a>(scenario: &'a Scenario, review: &'a Review) -> Option<(&'a RunReport, Picture<'a>)> {
     let run = review.typical.as_ref()?;
-    Some((run, Picture::of_run(scenario, &review.asked, run, TYPICAL)))
+    Some((run, Picture::of_run(scenario, &review.asked, run, TYPICAL).with_bands(&review.sweep)))
 }
 
-/// The failing cases that were run, those of the worst findings first, at most [`MOST_PICTURES`].
+/// The failing cases that were run, each with the typical run laid on it, those of the worst findings first, at most [`MOST_PICTURES`].
 pub(super) fn shown<'a>(scenario: &'a Scenario, review: &'a Review) -> Vec<Shown<'a>> {
     let mut stems = BTreeSet::from([TYPICAL.to_string()]);
     let mut shown: Vec<&(usize, RunReport)> =
@@ -45,12 +45,15 @@ pub(super) fn shown<'a>(scenario: &'a Scenario, review: &'a Review) -> Vec<Shown
         let subject = &review.sweep.findings[*finding].subject;
         let stem = unique(causes::stem(scenario, &review.asked, subject, "waves"), &mut stems);
         let why = review.why.get(*finding).and_then(Option::as_ref);
-        let picture = Picture {
-            nets: Nets::Telling,
-            race: why.and_then(|why| why.race.clone()),
-            range: around(subject, run),
-            ..Picture::of_run(scenario, &review.asked, run, &stem)
-        };
+        let mut picture = Picture::of_run(scenario, &review.asked, run, &stem);
+        picture.race = why.and_then(|why| why.race.clone());
+        if picture.nets == Nets::All {
+            picture.nets = Nets::Telling;
+        }
+        picture.range = picture.range.or_else(|| around(subject, run));
+        if let Some(typical) = review.typical.as_ref().filter(|typical| typical.which != run.which) {
+            picture = picture.against(typical);
+        }
         Shown { finding: *finding, run, stem, picture }
     };
     shown.into_iter().map(one).collect()

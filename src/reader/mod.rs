@@ -26,7 +26,7 @@ pub use instance::{load_instance, read_instance};
 pub use part::{LoadedPart, MAX_PART_BYTES, load_part, read_part, scenario_of};
 
 use crate::delay::Marginal;
-use crate::scenario::{BeginAt, Builder, Fault, Mark, Said, Scenario, Vary};
+use crate::scenario::{BeginAt, Builder, Fault, Mark, NewPlot, Said, Scenario, Vary};
 use crate::time::Unit;
 use diagnostics::Placed;
 use walk::{Value, Walk};
@@ -110,7 +110,7 @@ fn stem(name: &str) -> String {
     Path::new(name).file_stem().map_or_else(|| name.to_string(), |stem| stem.to_string_lossy().into_owned())
 }
 
-const KEYS: [&str; 18] = [
+const KEYS: [&str; 19] = [
     "title",
     "time_unit",
     "outputs",
@@ -129,10 +129,11 @@ const KEYS: [&str; 18] = [
     "limits",
     "sweep",
     "padding",
+    "plot",
 ];
 
 /// Keys that later versions will read; until then they are named in every result.
-const RESERVED: [&str; 4] = ["cells", "parts", "split", "plot"];
+const RESERVED: [&str; 3] = ["cells", "parts", "split"];
 
 fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) {
     for (key, value) in table.iter() {
@@ -182,15 +183,11 @@ fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) {
             "limits" => limits(walk, builder, value),
             "sweep" => sweep(walk, builder, value),
             "padding" => padding(walk, builder, value),
+            "plot" => plot(walk, builder, value),
             reserved if RESERVED.contains(&reserved) => {
                 let mark = walk.mark(key.span());
                 let sentence = Said::at(format!("`{reserved}`: not analysed yet; it has no effect"), mark);
-                // how pictures look changes no verdict
-                if reserved == "plot" {
-                    builder.note(sentence)
-                } else {
-                    builder.not_analysed(sentence)
-                };
+                builder.not_analysed(sentence);
             }
             _ => walk.unknown_key(key, &KEYS, "the file"),
         }
@@ -276,6 +273,23 @@ fn padding(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
             _ => walk.unknown_key(key, &["allow"], "[padding]"),
         }
     }
+}
+
+fn plot(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
+    let Some(table) = walk.table(value, "write `[plot]`, then `nets`, `from` or `to`") else { return };
+    let mut plot = NewPlot::default();
+    for (key, value) in table.iter() {
+        match key.get_ref().as_ref() {
+            "nets" => {
+                let mark = walk.mark(value.span());
+                plot.nets = walk.names(value).map(|names| Said::at(names, mark));
+            }
+            "from" => plot.from = walk.amount(value),
+            "to" => plot.to = walk.amount(value),
+            _ => walk.unknown_key(key, &["nets", "from", "to"], "[plot]"),
+        }
+    }
+    builder.plot(plot);
 }
 
 fn draw(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {

@@ -18,6 +18,10 @@ pub(super) struct Drawn<'a> {
     /// The stem of its files.
     stem: String,
     pub sheet: Sheet,
+    /// Nets that this sheet does not show.
+    left_out: u64,
+    /// Does it have may-change bands?
+    bands: bool,
 }
 
 /// The typical run, then the failing cases that were run, worst first. Each is one sheet here; its files have all.
@@ -26,11 +30,15 @@ pub(super) fn drawn<'a>(scenario: &'a Scenario, review: &'a Review) -> Vec<Drawn
     let typical = typical.map(|(run, picture)| (None, run, pictures::TYPICAL.to_string(), picture));
     let shown = pictures::shown(scenario, review);
     let shown = shown.into_iter().map(|it| (Some(it.finding), it.run, it.stem, it.picture));
-    let draw = |(n, (finding, run, stem, picture)): (usize, (_, _, _, Picture<'a>))| {
+    let draw = |(n, (finding, run, stem, picture)): (usize, (Option<usize>, &'a RunReport, String, Picture<'a>))| {
         let id = format!("run-{n}");
         let picture = Picture { nets: one_sheet(&picture), id: id.clone(), ..picture };
-        let sheet = waves::sheets(&picture).into_iter().next();
-        sheet.map(|sheet| Drawn { id, finding, run, stem, sheet })
+        let mut sheets = waves::sheets(&picture).into_iter();
+        let sheet = sheets.next()?;
+        let further = sheets.map(|sheet| sheet.nets.len()).sum::<usize>();
+        let left_out = (sheet.left_out.len() + further) as u64;
+        let bands = finding.is_none() && review.sweep.envelope.is_some();
+        Some(Drawn { id, finding, run, stem, sheet, left_out, bands })
     };
     typical.into_iter().chain(shown).enumerate().filter_map(draw).collect()
 }
@@ -50,12 +58,13 @@ pub(super) fn called(run: &Drawn<'_>) -> String {
 
 /// The picture with what its files are called, and a button that only a script shows.
 pub(super) fn draw(scenario: &Scenario, run: &Drawn<'_>) -> Markup {
-    let left_out = run.sheet.left_out.len() as u64;
+    let left_out = run.left_out;
     let table = bundle::table_fits(scenario, run.run).is_ok();
     let caption = html! {
         "Waveforms, " (words::clean(&called(run))) ". Files: " code { (run.stem) ".svg" }
         @if table { ", " code { (run.stem) ".csv" } }
         "."
+        @if run.bands { " Times of the may-change bands: " code { "envelope.csv" } "." }
         @if left_out > 0 {
             " Left out here: " (words::many(left_out, "net")) "; "
             @if table { code { (run.stem) ".csv" } " has all." } @else { code { "stillgate run --nets A,B,…" } " draws them." }
