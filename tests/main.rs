@@ -32,6 +32,7 @@ mod parts;
 mod paths;
 mod per_event;
 mod proofs;
+mod proofs_agree;
 mod races;
 mod scale;
 mod searches;

@@ -44,6 +44,13 @@ pub enum Goal {
         /// The greatest distance, in ticks.
         max: i64,
     },
+    /// The pattern that the next step waits for does not come.
+    Missed {
+        /// The nets of the pattern, by their number in the plant.
+        nets: Vec<u32>,
+        /// How long after the step before it gives up, in ticks; without, the run ends at rest or goes on for ever.
+        timeout: Option<i64>,
+    },
     /// A partial state shows for longer than this.
     Long {
         /// Nets by their number in the plant, and values.
@@ -120,6 +127,15 @@ impl Goal {
                     return vec![vec![later(begin, time(last), *max)]];
                 }
                 vec![waiting(&|net| net == to.net).iter().map(|due| later(begin, due, *max)).collect()]
+            }
+            Goal::Missed { nets, timeout } => {
+                let Some(timeout) = timeout else { return vec![Vec::new()] };
+                let steps = |mover: &Mover| matches!(mover, Mover::Step(_));
+                let step = (0..=last).rev().find(|block| trace[*block].movers.iter().any(steps));
+                let end = step.map_or_else(Form::default, |block| time(block).clone()).with(*timeout);
+                let of = |gate: &u32| nets.contains(&((plant.inputs + *gate as usize) as u32));
+                let pending = system.pending.iter().filter(|(gate, _)| of(gate));
+                vec![pending.map(|(_, due)| end.minus(due)).collect()]
             }
             Goal::Long { pattern, longer } => {
                 let shows = |values: &[u64]| pattern.iter().all(|(net, value)| bit(values, *net as usize) == *value);

@@ -28,7 +28,7 @@ fn once_round(plant: &Plant, cycle: &Cycle) -> Option<Vec<Fired>> {
         if movers.is_empty() {
             return None;
         }
-        blocks.push(Fired { movers, values: values.clone(), steps: cycle.steps as usize });
+        blocks.push(Fired { movers, values: values.clone(), steps: cycle.steps as usize, came: false });
         before = values;
     }
     Some(blocks)
@@ -76,13 +76,16 @@ impl Prover<'_> {
         }
         let steps = self.steps_of(&world.plant, question);
         let here: Vec<&Cycle> = cycles.iter().filter(|cycle| steps.contains(&cycle.steps)).collect();
-        if here.is_empty() {
-            return claim;
-        }
+        if here.is_empty() { claim } else { self.goes_round(world, &here, question) }
+    }
+
+    /// What oscillations that break a question say of it: looks for a case that shows it.
+    pub(super) fn goes_round(&mut self, world: &World, here: &[&Cycle], question: u32) -> Claim {
+        let mut claim = Claim::new(question, Call::Undecided);
         claim.but_for_ties = here.iter().all(|cycle| cycle.needs_ties == Some(true));
         // the way there is no way round: whether it goes on, the run says
         let mut shown = None;
-        for cycle in &here {
+        for cycle in here {
             // once round, where it can be told what fires; then only the way there
             let round = once_round(&world.plant, cycle);
             let whole: Option<Vec<Fired>> = round.map(|round| cycle.lead.iter().cloned().chain(round).collect());

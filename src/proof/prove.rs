@@ -12,7 +12,7 @@ use super::claim::{Call, Claim, Proof, Variation};
 use super::cycles::{RestVerdict, comes_to_rest_within};
 use super::evidence::{Evidence, trails};
 use super::explore::explore;
-use super::explored::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE};
+use super::explored::{Budget, Ended, Explored, Fired, Merge, Mode, SINCE, START};
 use super::goals::Goal;
 use super::grouped::grouped;
 use super::key::bit;
@@ -171,7 +171,7 @@ impl<'a> Prover<'a> {
     }
 
     /// Explores as far as the budget goes, and says why no farther.
-    fn explore_some<W: Watch>(&mut self, world: &World, watch: &W, mode: Mode) -> (Explored, Option<Unsaid>) {
+    pub(super) fn explore_some<W: Watch>(&mut self, world: &World, watch: &W, mode: Mode) -> (Explored, Option<Unsaid>) {
         if let Some(spent) = self.spent() {
             return (Explored::nothing(&world.plant), Some(spent));
         }
@@ -288,7 +288,6 @@ impl<'a> Prover<'a> {
 
     fn group(&mut self, rule: RuleKey, index: u32, net: Option<NetId>, questions: &[u32]) -> Result<(), Unsaid> {
         let rules = self.scenario.rules.clone();
-        let not_covered = |reason: &str| Err(Unsaid { call: Call::NotCovered, reason: reason.to_string() });
         match rule {
             RuleKey::Never => {
                 let never = &rules.never[index as usize];
@@ -413,7 +412,7 @@ impl<'a> Prover<'a> {
             RuleKey::Reference => self.reference(questions),
             RuleKey::CriticalRace => self.races(questions),
             RuleKey::Oscillation => self.oscillation(questions),
-            RuleKey::When => not_covered("steps that wait for a pattern are not part of the proof yet"),
+            RuleKey::When => self.patterns(questions),
             RuleKey::BeforeRest => self.before_rest(questions),
         }
     }
@@ -485,7 +484,7 @@ impl<'a> Prover<'a> {
     fn glitches(&mut self, index: u32, questions: &[u32]) -> Result<(), Unsaid> {
         let rule = self.scenario.rules.glitch_free[index as usize].clone();
         let world = self.world(&[rule.net], &[])?;
-        let watch = Moves { net: world.plant.local(rule.net).expect("the cone holds its nets"), most: 2 };
+        let watch = Moves { net: world.plant.local(rule.net).expect("the cone holds its nets"), most: 2, from: None };
         let from = self.proof.claims.len();
         let glitch = |_: &Question, steps: &Stretch, hit: u32| {
             let moved = Moves::moved(hit);
@@ -518,7 +517,8 @@ impl<'a> Prover<'a> {
                 self.unsaid(&[*question], &Unsaid { call: Call::NotCovered, reason });
                 continue;
             }
-            let watch = Moves { net: world.plant.local(count.net).expect("the cone holds its nets"), most };
+            let from = Some(self.steps_of(&world.plant, *question).start);
+            let watch = Moves { net: world.plant.local(count.net).expect("the cone holds its nets"), most, from };
             let wrong = |_: &Question, steps: &Stretch, hit: u32| {
                 let moved = Moves::moved(hit);
                 steps.contains(&moved.steps) && !(count.least..=count.most).contains(&moved.count)
@@ -556,13 +556,15 @@ impl<'a> Prover<'a> {
         good: &dyn Fn(&Plant, &[u64], u32) -> bool,
     ) -> Result<(), Unsaid> {
         let world = self.world(nets, &[])?;
+        // what is expected of a step begins with it, even if it changes nothing
+        let own = questions.iter().any(|question| self.asked.questions[*question as usize].rule == RuleKey::Expect);
+        let latest = if own { SINCE } else { START };
         let ranges: Vec<(u32, Stretch)> =
             questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
         let bad = |found: &Explored, steps: &Stretch| -> Vec<(u32, super::explored::Rest)> {
             let all = found.rests.iter().filter(|(rest, _)| {
-                let begins = rest.steps == 0 && steps.start == 0;
                 steps.contains(&rest.steps)
-                    && (rest.origin != NOWHERE || begins)
+                    && rest.origin <= latest
                     && !good(&world.plant, &found.states[rest.state as usize], rest.origin)
             });
             all.map(|(rest, node)| (*node, *rest)).collect()
