@@ -26,6 +26,13 @@ pub enum Goal {
         /// The bounds.
         least: [i64; 2],
     },
+    /// In the last window that touches it the net has no pulse that is shorter than this.
+    Wide {
+        /// The net, by its number in the plant.
+        net: u32,
+        /// The bound, in ticks.
+        least: i64,
+    },
     /// The second edge comes sooner than this after the first.
     Close {
         /// The earlier edge.
@@ -110,6 +117,15 @@ impl Goal {
                     (Some(begin), Some(new)) => vec![vec![sooner(time(begin), time(last), least[usize::from(!new)])]],
                     _ => Vec::new(),
                 }
+            }
+            Goal::Wide { net, least } => {
+                let opens = |mover: &Mover| matches!(mover, Mover::Step(_) | Mover::Edge(_));
+                let begin = (0..=last).rev().find(|block| trace[*block].movers.iter().any(opens)).unwrap_or(0);
+                let changes: Vec<usize> =
+                    (begin..=last).filter(|block| walked.change(*net, *block).is_some()).collect();
+                // as wide as the bound is too wide: a tick less is asked for, the run decides
+                let wide = |pair: &[usize]| later(time(pair[0]), time(pair[1]), least - 1);
+                vec![changes.windows(2).map(wide).collect()]
             }
             Goal::Close { from, to, min } => {
                 // what shows at one instant needs no condition

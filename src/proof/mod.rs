@@ -50,6 +50,6 @@ pub use semantics::{Exact, Semantics};
 pub use system::{Form, Point, Points, Row, Sense, System, Unknown};
 pub use watch::{Arrival, Block, Fate, Nothing, SAME, Watch};
 pub use watches::{
-    Answered, Apart, BeforeRest, Edge, Late, Moved, Moves, Settles, Shows, ShowsLonger, Swallows, Width,
+    Answered, Apart, BeforeRest, Edge, Late, Moved, Moves, Settles, Shows, ShowsLonger, Swallows, Tolerates, Width,
 };
 pub use witness::{Case, case, one_draw};

@@ -20,7 +20,7 @@ use super::outside::Stretch;
 use super::plant::Plant;
 use super::system::{Points, Sense, System};
 use super::watch::{Nothing, Watch};
-use super::watches::{Answered, Apart, Edge, Late, Moves, Shows, ShowsLonger, Swallows, Width};
+use super::watches::{Answered, Apart, Edge, Late, Moves, Shows, ShowsLonger, Swallows, Tolerates, Width};
 use super::witness::{case, one_draw};
 use crate::circuit::NetId;
 use crate::control::Control;
@@ -483,26 +483,19 @@ impl<'a> Prover<'a> {
 
     fn glitches(&mut self, index: u32, questions: &[u32]) -> Result<(), Unsaid> {
         let rule = self.scenario.rules.glitch_free[index as usize].clone();
-        let world = self.world(&[rule.net], &[])?;
-        let watch = Moves { net: world.plant.local(rule.net).expect("the cone holds its nets"), most: 2, from: None };
-        let from = self.proof.claims.len();
+        let world = self.world(&[rule.net], &[rule.shorter_than])?;
+        let net = world.plant.local(rule.net).expect("the cone holds its nets");
         let glitch = |_: &Question, steps: &Stretch, hit: u32| {
             let moved = Moves::moved(hit);
             steps.contains(&moved.steps) && moved.count >= 2
         };
-        self.by_window(&world, &watch, questions, &glitch, &reached)?;
-        if rule.shorter_than > Span::ZERO {
-            for claim in &mut self.proof.claims[from..] {
-                if claim.call == Call::Undecided {
-                    claim.call = Call::NotCovered;
-                    claim.reason = Some(
-                        "that glitches shorter than a bound are tolerated is not part of the proof; it can glitch"
-                            .into(),
-                    );
-                }
-            }
+        if rule.shorter_than == Span::ZERO {
+            let watch = Moves { net, most: 2, from: None };
+            return self.by_window(&world, &watch, questions, &glitch, &reached);
         }
-        Ok(())
+        let shorter = world.plant.ticks(rule.shorter_than);
+        let goal = move |_: &Plant, _: &Question| Goal::Wide { net, least: shorter };
+        self.by_window(&world, &Tolerates { net, shorter }, questions, &glitch, &goal)
     }
 
     fn edges(&mut self, questions: &[u32]) -> Result<(), Unsaid> {
