@@ -46,7 +46,7 @@ set = {{ b = 1 }}
     assert_eq!(call(&waits("timeout = 6", ""), "when"), Call::Proved);
     assert_eq!(call(&waits("timeout = 5.999999", ""), "when"), Call::Refuted);
     assert_eq!(call(&waits("", ""), "when"), Call::Proved);
-    assert_eq!(call(&waits("", "").replace("y = 1", "y = 1, z = 1"), "when"), Call::Refuted);
+    assert_eq!(call(&waits("", "").replace("when = { y = 1 }", "when = { y = 1, z = 1 }"), "when"), Call::Refuted);
     let timing = |bound: &str| {
         let rule = format!("[[rules.timing]]\nfrom = \"a rise\"\nto = \"b rise\"\n{bound}");
         call(&waits("timeout = 20", &rule), "timing")
@@ -190,4 +190,38 @@ state = {{ a = 0, y = 0 }}
     assert_eq!(call(&idle("edges = { y = 1 }"), "edges"), Call::Refuted);
     assert_eq!(call(&idle("edges = { y = 0 }"), "edges"), Call::Proved);
     assert_eq!(call(&idle(""), "never_at_rest"), Call::Refuted);
+}
+
+/// A step at rest waits for the whole circuit, also where a question is about a part of it: the input goes back 7 to 9 after it
+/// came, which is when the slow gate rests.
+#[test]
+fn a_step_at_rest_waits_for_gates_outside_the_cone() {
+    let slow = |rule: &str| {
+        format!(
+            r#"
+[inputs]
+a = 0
+[gates]
+slow = {{ buf = ["a"], delay = [7, 9] }}
+y = {{ buf = ["a"], delay = 1 }}
+[[steps]]
+at = 10
+set = {{ a = 1 }}
+[[steps]]
+rest = 0
+set = {{ a = 0 }}
+[rules]
+{rule}
+"#
+        )
+    };
+    let max = |max: &str| {
+        let rule = format!("[[rules.timing]]\nfrom = \"a rise\"\nto = \"a fall\"\nmax = {max}");
+        call(&slow(&rule), "timing")
+    };
+    assert_eq!(max("9"), Call::Proved);
+    assert_eq!(max("8.999999"), Call::Refuted);
+    let never = |longer: &str| call(&slow(&format!("[[rules.never]]\nstate = {{ y = 1 }}\nlonger_than = {longer}")), "never");
+    assert_eq!(never("9"), Call::Proved);
+    assert_eq!(never("8.999999"), Call::Refuted);
 }

@@ -27,7 +27,7 @@ use crate::control::Control;
 use crate::engine::{Program, Trace};
 use crate::findings::{Answers, Asked, Judge, Pattern, Question, RuleKey};
 use crate::instance::{Instance, Which};
-use crate::scenario::{Alternative, Scenario};
+use crate::scenario::{Alternative, Place, Scenario};
 use crate::time::Span;
 
 /// Gates of a cone that may begin at random, at most: every start is explored.
@@ -292,6 +292,7 @@ impl<'a> Prover<'a> {
             RuleKey::Never => {
                 let never = &rules.never[index as usize];
                 let nets: Vec<NetId> = never.state.iter().map(|(net, _)| *net).collect();
+                let nets = if never.longer_than > Span::ZERO { self.while_others_work(nets) } else { nets };
                 let world = self.world(&nets, &[never.longer_than])?;
                 let pattern = local(&world.plant, &never.state);
                 // the state at the start counts, even where the first step comes at that very instant
@@ -311,7 +312,11 @@ impl<'a> Prover<'a> {
             RuleKey::Timing => {
                 let timing = &rules.timing[index as usize];
                 let spans: Vec<Span> = timing.min.into_iter().chain(timing.max).collect();
-                let world = self.world(&[timing.from.net, timing.to.net], &spans)?;
+                let mut nets = vec![timing.from.net, timing.to.net];
+                if timing.max.is_some() {
+                    nets = self.while_others_work(nets);
+                }
+                let world = self.world(&nets, &spans)?;
                 let edge = |spec: &crate::scenario::EdgeSpec| Edge {
                     net: world.plant.local(spec.net).expect("the cone holds its nets"),
                     kind: spec.edge,
@@ -415,6 +420,13 @@ impl<'a> Prover<'a> {
             RuleKey::When => self.patterns(questions),
             RuleKey::BeforeRest => self.before_rest(questions),
         }
+    }
+
+    /// The nets that a question must know which asks how long something lasts: a step at rest waits for the whole circuit,
+    /// and not for the cone alone.
+    fn while_others_work(&self, nets: Vec<NetId>) -> Vec<NetId> {
+        let waits = self.scenario.stimulus.steps.iter().any(|step| matches!(step.place, Place::Rest(_)));
+        if waits { self.scenario.circuit.nets().collect() } else { nets }
     }
 
     /// A question about whole runs: any hit breaks it.
