@@ -654,7 +654,8 @@ fn a_weaker_rule_is_noticed() {
         Kind { wires: 0.0, timed: true, power_up: true, waits: true, ties: true, clock: false },
     ];
     let apart = Mode { joint: false, ..TOGETHER };
-    let rules = [Rule::Due, Rule::Cancelled, Rule::Lasts, Rule::Later, Rule::Cools, Rule::Old, Rule::Follows, Rule::Peeks];
+    let rules =
+        [Rule::Due, Rule::Cancelled, Rule::Lasts, Rule::Later, Rule::Cools, Rule::Old, Rule::Follows, Rule::Peeks];
     let weaker = rules.map(|rule| (rule, TOGETHER));
     for rules in weaker.into_iter().chain([(Rule::Right, apart)]) {
         let mut met = Met::default();

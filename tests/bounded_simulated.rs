@@ -172,8 +172,13 @@ fn check(world: &World, rest: &Bits, rng: &mut ChaCha8Rng, met: &mut Met) -> Res
     for net in &nets[world.inputs.len()..] {
         let cone = Plant::of(&scenario, &[*net], &[fs(1)]).map_err(|error| error.to_string())?;
         let from: Vec<bool> = cone.nets.iter().map(|net| start[net.index()]).collect();
-        let found =
-            explore(&cone, &[from], &Moves { net: cone.local(*net).unwrap(), most: 2, from: None }, Mode::default(), &budget);
+        let found = explore(
+            &cone,
+            &[from],
+            &Moves { net: cone.local(*net).unwrap(), most: 2, from: None },
+            Mode::default(),
+            &budget,
+        );
         moves.push((found.ended == Ended::Complete).then(|| {
             let moved = found.hits.keys().map(|hit| Moves::moved(*hit));
             moved.map(|moved| (moved.steps, moved.before, moved.count)).collect()

@@ -52,7 +52,8 @@ fn the_table_in_the_docs_is_what_prove_says() {
     let mut files: Vec<_> = std::fs::read_dir(root.join("scenarios")).unwrap().map(|it| it.unwrap().path()).collect();
     files.retain(|path| path.extension().is_some_and(|it| it == "toml"));
     files.sort();
-    let mut table = String::from("| demonstration | proved | refuted | undecided | not covered |\n|---|---|---|---|---|\n");
+    let mut table =
+        String::from("| demonstration | proved | refuted | undecided | not covered |\n|---|---|---|---|---|\n");
     for path in files {
         let name = path.file_stem().unwrap().to_string_lossy();
         table += &row(&name, &std::fs::read_to_string(&path).unwrap());

@@ -221,7 +221,8 @@ set = {{ a = 0 }}
     };
     assert_eq!(max("9"), Call::Proved);
     assert_eq!(max("8.999999"), Call::Refuted);
-    let never = |longer: &str| call(&slow(&format!("[[rules.never]]\nstate = {{ y = 1 }}\nlonger_than = {longer}")), "never");
+    let never =
+        |longer: &str| call(&slow(&format!("[[rules.never]]\nstate = {{ y = 1 }}\nlonger_than = {longer}")), "never");
     assert_eq!(never("9"), Call::Proved);
     assert_eq!(never("8.999999"), Call::Refuted);
 }

@@ -54,9 +54,8 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         }
         // time passes, but for a step that waits for rest
         let mut number = number;
-        let waits = all_rests
-            && matches!(place, Some(PlantPlace::Rest(_)))
-            && self.found.key(number).clocks_over(self.plant);
+        let waits =
+            all_rests && matches!(place, Some(PlantPlace::Rest(_))) && self.found.key(number).clocks_over(self.plant);
         let (mut goes_on, mut missed) = (true, false);
         if !waits {
             let info = &self.known.infos[number as usize];
@@ -160,7 +159,10 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             self.note(node, next, (parent, movers), rested, None);
         }
         let info = &self.known.infos[number as usize];
-        if !begins && !self.found.key(number).held() && info.agents.iter().any(|agent| whole.may_reach(agent.row, self.semantics.due(agent.min))) {
+        if !begins
+            && !self.found.key(number).held()
+            && info.agents.iter().any(|agent| whole.may_reach(agent.row, self.semantics.due(agent.min)))
+        {
             self.entry = whole;
             let node = self.keep(number, parent, movers);
             self.note(node, number, (parent, movers), None, None);

@@ -22,9 +22,10 @@ impl Prover<'_> {
             let comes = hull.as_ref().is_ok_and(|found| !found.missed.contains_key(&step));
             if !comes {
                 if exact.is_none() {
-                    exact = Some([true, false].map(|joint| {
-                        self.explore_some(&world, &Nothing, Mode { joint, ..Mode::default() })
-                    }));
+                    exact = Some(
+                        [true, false]
+                            .map(|joint| self.explore_some(&world, &Nothing, Mode { joint, ..Mode::default() })),
+                    );
                 }
                 let [(whole, short), (apart, apart_short)] = exact.as_ref().expect("it was just made");
                 if whole.missed.contains_key(&step) || apart.missed.contains_key(&step) {
@@ -50,9 +51,7 @@ impl Prover<'_> {
             let clocked = !world.plant.clocks.is_empty();
             let cycles: Vec<&Cycle> = match verdict {
                 RestVerdict::Always => Vec::new(),
-                RestVerdict::Cycles(cycles) => {
-                    cycles.iter().filter(|cycle| clocked || cycle.steps == step).collect()
-                }
+                RestVerdict::Cycles(cycles) => cycles.iter().filter(|cycle| clocked || cycle.steps == step).collect(),
                 RestVerdict::Undecided(ended) => {
                     let unsaid = Unsaid { call: Call::Undecided, reason: self.why(*ended) };
                     self.unsaid(&[*question], &unsaid);

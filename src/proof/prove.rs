@@ -171,7 +171,12 @@ impl<'a> Prover<'a> {
     }
 
     /// Explores as far as the budget goes, and says why no farther.
-    pub(super) fn explore_some<W: Watch>(&mut self, world: &World, watch: &W, mode: Mode) -> (Explored, Option<Unsaid>) {
+    pub(super) fn explore_some<W: Watch>(
+        &mut self,
+        world: &World,
+        watch: &W,
+        mode: Mode,
+    ) -> (Explored, Option<Unsaid>) {
         if let Some(spent) = self.spent() {
             return (Explored::nothing(&world.plant), Some(spent));
         }

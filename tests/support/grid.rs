@@ -410,10 +410,7 @@ impl Runs<'_> {
         };
         let pending = state.due.iter().map(soon).chain(state.late.iter().map(|late| late.1));
         let alone = state.fresh
-            && matches!(
-                self.grid.steps.get(state.next as usize).map(|step| &step.place),
-                Some(GridPlace::When(..))
-            );
+            && matches!(self.grid.steps.get(state.next as usize).map(|step| &step.place), Some(GridPlace::When(..)));
         let step = self.window(&state).map(|(lo, _)| match state.fresh && state.wait >= lo {
             true => 0,
             false => lo.saturating_sub(state.wait).max(1),

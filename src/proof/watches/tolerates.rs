@@ -28,7 +28,9 @@ impl Tolerates {
     const JUDGED: u32 = 1 << 31;
 
     fn runs(state: u32) -> bool {
-        state & Self::JUDGED != 0 && (1..=2).contains(&(state & Self::COUNT)) && state & (Self::PAST | Self::NARROW) == 0
+        state & Self::JUDGED != 0
+            && (1..=2).contains(&(state & Self::COUNT))
+            && state & (Self::PAST | Self::NARROW) == 0
     }
 }
 
