@@ -37,6 +37,7 @@ mod proofs_agree;
 mod races;
 mod scale;
 mod searches;
+mod settling_bounds;
 mod support;
 mod sweeps_agree;
 mod ties;

@@ -53,10 +53,10 @@ pub enum Name {
     Below,
     /// Behind its end.
     Behind,
-    /// Over its end, to the left.
-    Over,
-    /// Under its end, to the left.
-    Under,
+    /// Over its middle, to the left: free of a line that rises.
+    Left,
+    /// Under its middle, to the right.
+    Right,
 }
 
 /// Points and a line.
@@ -151,12 +151,13 @@ fn line(chart: &mut Axes<'_, '_>, series: &Series) -> Result<(), Box<dyn Error>>
 
 fn name(chart: &mut Axes<'_, '_>, series: &Series) -> Result<(), Box<dyn Error>> {
     let (Some(&first), Some(&last)) = (series.line.first(), series.line.last()) else { return Ok(()) };
+    let middle = series.line[series.line.len() / 2];
     let (place, side) = match series.place {
         Name::Above => ((first.0, first.1 * 5.0), (HPos::Left, VPos::Bottom)),
         Name::Below => ((first.0 * 1.7, first.1), (HPos::Left, VPos::Top)),
         Name::Behind => ((last.0 * 1.12, last.1), (HPos::Left, VPos::Center)),
-        Name::Over => ((last.0, last.1 * 1.25), (HPos::Right, VPos::Bottom)),
-        Name::Under => ((last.0, last.1 * 0.5), (HPos::Right, VPos::Top)),
+        Name::Left => ((middle.0 * 0.9, middle.1 * 1.25), (HPos::Right, VPos::Bottom)),
+        Name::Right => ((middle.0 * 1.1, middle.1 * 0.8), (HPos::Left, VPos::Top)),
     };
     let style = text(11.0, series.ink).pos(Pos::new(side.0, side.1));
     chart.draw_series([Text::new(series.name, place, style)])?;

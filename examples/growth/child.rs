@@ -4,9 +4,16 @@
 use std::process::Command;
 use std::time::Instant;
 
+use peak_alloc::PeakAlloc;
+
 use crate::{gates, measure, samples, trace};
 
 const ASKED: &str = "STILLGATE_GROWTH";
+/// Short work is repeated until it has taken this long, seconds.
+const AT_LEAST: f64 = 0.2;
+
+#[global_allocator]
+static HELD: PeakAlloc = PeakAlloc;
 
 /// Measures what the parent asked for, if it did, and ends the process.
 pub fn answer_if_asked() {
@@ -27,10 +34,8 @@ pub fn answer_if_asked() {
 /// Has a process of its own measure a model of this size.
 pub fn ask(kind: &str, model: &str, size: u64) -> Vec<f64> {
     let program = std::env::current_exe().expect("a program that runs has a file");
-    let mut command = Command::new(program);
-    // what is freed goes back to the system, so that resident memory is memory in use
-    command.env("MALLOC_MMAP_THRESHOLD_", "16384").env("MALLOC_TRIM_THRESHOLD_", "16384");
-    let output = command.env(ASKED, format!("{kind} {model} {size}")).output().expect("it can be started again");
+    let output =
+        Command::new(program).env(ASKED, format!("{kind} {model} {size}")).output().expect("it can be started again");
     let text = String::from_utf8_lossy(&output.stdout);
     let numbers: Result<Vec<f64>, _> = text.split_whitespace().map(str::parse).collect();
     match numbers {
@@ -50,14 +55,24 @@ pub fn timed<T>(work: impl FnOnce() -> T) -> (f64, T) {
     (spent, result)
 }
 
+/// Processor time of one piece of work that is done again and again until it can be measured, seconds, and its last result.
+pub fn timed_again<T>(mut work: impl FnMut() -> T) -> (f64, T) {
+    let (mut spent, mut times) = (0.0, 0.0);
+    loop {
+        let (seconds, result) = timed(&mut work);
+        (spent, times) = (spent + seconds, times + 1.0);
+        if spent >= AT_LEAST {
+            return (spent / times, result);
+        }
+    }
+}
+
 /// The fastest of several.
 pub fn fastest(times: usize, mut work: impl FnMut() -> f64) -> f64 {
     (0..times).map(|_| work()).fold(f64::INFINITY, f64::min)
 }
 
-/// Memory that this process holds now, bytes; 0 where the system does not tell.
-pub fn resident() -> f64 {
-    let text = std::fs::read_to_string("/proc/self/status").unwrap_or_default();
-    let line = text.lines().find_map(|line| line.strip_prefix("VmRSS:"));
-    line.and_then(|line| line.trim().strip_suffix("kB")?.trim().parse::<f64>().ok()).map_or(0.0, |kb| kb * 1024.0)
+/// Memory that is allocated now, bytes.
+pub fn allocated() -> f64 {
+    HELD.current_usage() as f64
 }

@@ -9,7 +9,7 @@ use stillgate::findings::Asked;
 use stillgate::sweep::run_samples;
 
 use crate::chart::{Name, Panel, Point, RUST, Series, TEAL, page, power};
-use crate::child::{ask, timed};
+use crate::child::{ask, timed_again};
 use crate::models::{divider, latch};
 
 const SIZES: [u64; 4] = [1_000, 10_000, 100_000, 1_000_000];
@@ -21,7 +21,7 @@ pub fn measured(model: &str, samples: u64) -> Vec<f64> {
     let control = Control::default();
     let program = Program::new(&scenario, &control).expect("it begins at rest");
     let asked = Asked::of(&scenario);
-    let (seconds, tally) = timed(|| run_samples(&scenario, &program, &asked, 0..samples, 1, &control));
+    let (seconds, tally) = timed_again(|| run_samples(&scenario, &program, &asked, 0..samples, 1, &control));
     assert_eq!(tally.samples, samples);
     vec![seconds, crate::measure::peak().unwrap_or(0.0)]
 }
@@ -35,7 +35,7 @@ pub fn growth(folder: &Path, measured_anew: bool) -> Result<(), Box<dyn Error>> 
         for (model, samples) in MODELS.iter().flat_map(|model| SIZES.map(|samples| (*model, samples))) {
             let n = ask("samples", model, samples);
             let rate = format!("{:.0}", samples as f64 / n[0]);
-            let row = [model.to_string(), samples.to_string(), format!("{:.4}", n[0]), rate, format!("{:.1}", n[1])];
+            let row = [model.to_string(), samples.to_string(), format!("{:.5}", n[0]), rate, format!("{:.1}", n[1])];
             writer.write_record(row)?;
             writer.flush()?;
         }
@@ -61,13 +61,13 @@ fn draw(table: &Path, file: &Path) -> Result<(), Box<dyn Error>> {
             across: across(),
             up: ("processor time [s]", 1e-4..100.0, &power),
             limit: None,
-            series: both(2, [Name::Under, Name::Over]),
+            series: both(2, [Name::Right, Name::Left]),
         },
         Panel {
             across: across(),
             up: ("peak memory [MB]", 1.0..1000.0, &tens),
             limit: None,
-            series: both(4, [Name::Under, Name::Over]),
+            series: both(4, [Name::Right, Name::Left]),
         },
     ];
     let note = "One thread, drawing and judging included. Latch of two NANDs: 8 transitions a sample; divider of six NANDs: \

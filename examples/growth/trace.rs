@@ -13,7 +13,7 @@ use stillgate::output::waves::Overflow;
 use stillgate::review::{MOST_KEPT, run_heard};
 
 use crate::chart::{Name, Panel, Point, RUST, Series, TEAL, page, power};
-use crate::child::{ask, timed};
+use crate::child::{ask, timed_again};
 use crate::models::rings;
 
 const SIZES: [u64; 7] = [10_000, 100_000, 300_000, 1_000_000, 3_000_000, 10_000_000, 30_000_000];
@@ -30,11 +30,11 @@ pub fn measured(model: &str, transitions: u64) -> Vec<f64> {
     let seconds = if model == "kernel" {
         let case = Instance::of(&scenario, &Which::Sample(7));
         let mut machine = program.machine::<()>();
-        timed(|| assert!(machine.run(&case, &control, &mut Deaf))).0
+        timed_again(|| assert!(machine.run(&case, &control, &mut Deaf))).0
     } else {
         let asked = Asked::of(&scenario);
         let file = std::env::temp_dir().join(format!("stillgate-growth-{}.csv", std::process::id()));
-        let (seconds, ()) = timed(|| {
+        let (seconds, ()) = timed_again(|| {
             let open = || Ok(BufWriter::new(File::create(&file)?));
             let table = Overflow::new(&scenario, MOST_KEPT as usize, open, &|| panic!("the table cannot be written"));
             let (report, table) = run_heard(&scenario, &program, &asked, Which::Sample(7), &control, table);
@@ -58,7 +58,7 @@ pub fn growth(folder: &Path, measured_anew: bool) -> Result<(), Box<dyn Error>> 
             let first = model.split([' ', ',']).next().expect("a word");
             let n = ask("trace", first, size);
             let megabytes = format!("{:.1}", n[2] / 1e6);
-            let row = [model.to_string(), size.to_string(), format!("{:.4}", n[0]), format!("{:.1}", n[1]), megabytes];
+            let row = [model.to_string(), size.to_string(), format!("{:.5}", n[0]), format!("{:.1}", n[1]), megabytes];
             writer.write_record(row)?;
             writer.flush()?;
         }
@@ -84,13 +84,13 @@ fn draw(table: &Path, file: &Path) -> Result<(), Box<dyn Error>> {
             across: across(),
             up: ("processor time [s]", 1e-4..100.0, &power),
             limit: None,
-            series: both(2, [Name::Under, Name::Over]),
+            series: both(2, [Name::Right, Name::Left]),
         },
         Panel {
             across: across(),
             up: ("peak memory [MB]", 1.0..1000.0, &tens),
             limit: None,
-            series: both(3, [Name::Under, Name::Over]),
+            series: both(3, [Name::Right, Name::Left]),
         },
     ];
     let note = "64 gates in rings, all at work. Kept: the first million transitions, for pictures; written: a table of all of \

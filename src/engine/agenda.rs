@@ -28,14 +28,34 @@ pub(super) struct Agenda {
 pub(super) struct Due {
     /// The moments that begin here; empty if only skewed changes are due.
     pub moments: Vec<u32>,
-    /// Input changes of this instant, in the order in which they are made.
+    /// Input changes of this instant, by net: of several changes of one net the last.
     pub set: Vec<(NetId, bool)>,
     /// Inputs that bounce, and so move whatever they lead to.
-    pub bouncing: Vec<NetId>,
+    bouncing: Vec<NetId>,
     /// All values that the steps of this instant lead to, skewed ones included.
-    pub becomes: Vec<(NetId, bool)>,
+    becomes: Vec<(NetId, bool)>,
+    /// The inputs among them that move.
+    pub changed: Vec<NetId>,
     /// The last input change of the steps of this instant.
     pub settle_from: Time,
+}
+
+impl Due {
+    /// Of several changes of one net the last; and which inputs move, from what they are in `state`.
+    fn sum_up(&mut self, state: &State) {
+        self.changed.clear();
+        for (i, &(net, value)) in self.becomes.iter().enumerate() {
+            let is_last = !self.becomes[i + 1..].iter().any(|later| later.0 == net);
+            if is_last && (state.get(net.index()) != Value::from(value) || self.bouncing.contains(&net)) {
+                self.changed.push(net);
+            }
+        }
+        if self.set.len() > 1 {
+            self.set.reverse();
+            self.set.sort_by_key(|(net, _)| *net);
+            self.set.dedup_by_key(|(net, _)| *net);
+        }
+    }
 }
 
 impl Agenda {
@@ -160,17 +180,30 @@ impl Agenda {
         }
     }
 
-    /// Takes out what is due at `at`. `quiet_since` as for [`Agenda::next`], `present` gives the value of an input just
-    /// before.
+    /// Takes out what is due at `at`. `quiet_since` as for [`Agenda::next`], `state` is that just before.
     pub(super) fn take(
         &mut self,
         at: Time,
         stimulus: &Stimulus,
         instance: &Instance,
         quiet_since: Option<Time>,
-        present: impl Fn(NetId) -> bool,
+        state: &State,
         due: &mut Due,
     ) {
+        self.take_all(at, stimulus, instance, quiet_since, state, due);
+        due.sum_up(state);
+    }
+
+    fn take_all(
+        &mut self,
+        at: Time,
+        stimulus: &Stimulus,
+        instance: &Instance,
+        quiet_since: Option<Time>,
+        state: &State,
+        due: &mut Due,
+    ) {
+        let present = |net: NetId| state.get(net.index()) == Value::One;
         due.moments.clear();
         due.set.clear();
         due.becomes.clear();

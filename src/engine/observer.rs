@@ -201,6 +201,47 @@ impl Observer for Deaf {
     fn change(&mut self, _at: Time, _net: NetId, _new: Value, _cause: ()) {}
 }
 
+/// An observer behind a pointer: a little slower at each event, and the kernel is not built anew for it.
+impl<T: Copy + Default> Observer for &mut dyn Observer<Tag = T> {
+    type Tag = T;
+
+    fn start(&mut self, state: &State) {
+        (**self).start(state);
+    }
+
+    fn open(&mut self, opening: &Opening<'_>) {
+        (**self).open(opening);
+    }
+
+    fn change(&mut self, at: Time, net: NetId, new: Value, cause: T) -> T {
+        (**self).change(at, net, new, cause)
+    }
+
+    fn arrival(&mut self, at: Time, wire: WireId, new: Value, cause: T) -> T {
+        (**self).arrival(at, wire, new, cause)
+    }
+
+    fn swallow(&mut self, at: Time, gate: GateId, age: Span, delay: Span) {
+        (**self).swallow(at, gate, age, delay);
+    }
+
+    fn cancel(&mut self, cancelled: &Cancelled<T>) {
+        (**self).cancel(cancelled);
+    }
+
+    fn batch(&mut self, at: Time) {
+        (**self).batch(at);
+    }
+
+    fn close(&mut self, closing: &Closing<'_>) {
+        (**self).close(closing);
+    }
+
+    fn finish(&mut self, finish: &Finish<'_>) {
+        (**self).finish(finish);
+    }
+}
+
 /// Two observers at once; the tags are those of the first.
 impl<A: Observer, B: Observer<Tag = ()>> Observer for (A, B) {
     type Tag = A::Tag;

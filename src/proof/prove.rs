@@ -719,13 +719,13 @@ impl<'a> Prover<'a> {
     /// Everything that happens in the run of a case; `None` if it was stopped.
     pub(super) fn run(&self, instance: &Instance) -> Option<Trace> {
         let mut trace = Trace::default();
-        self.program.machine().run(instance, &self.budget.control, &mut trace).then_some(trace)
+        self.program.machine().hear(instance, &self.budget.control, &mut trace).then_some(trace)
     }
 
     /// Does a run of this case break the question?
     pub(super) fn shows(&self, instance: &Instance, question: u32) -> bool {
         let mut observers = (Trace::default(), Judge::new(self.scenario, self.asked, Answers::default()));
-        if !self.program.machine().run(instance, &self.budget.control, &mut observers) {
+        if !self.program.machine().hear(instance, &self.budget.control, &mut observers) {
             return false;
         }
         let facts = &observers.1.sink.facts;

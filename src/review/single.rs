@@ -48,7 +48,7 @@ pub fn run_heard<O: Observer<Tag = ()>>(
     let instance = Instance::of(scenario, &which);
     let judge = Judge::new(scenario, asked, Answers::default());
     let mut observers = ((Trace::at_most(MOST_KEPT), judge), observer);
-    if !program.machine().run(&instance, control, &mut observers) {
+    if !program.machine().hear(&instance, control, &mut observers) {
         return (None, observers.1);
     }
     let ((trace, judge), observer) = observers;

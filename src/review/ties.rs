@@ -30,7 +30,7 @@ pub(super) fn look(
     let mut traces = Vec::new();
     for which in [Which::Typ, Which::Min, Which::Max] {
         let mut observers = (Trace::default(), Judge::new(scenario, asked, Heard::default()));
-        let done = program.machine().run(&Instance::of(scenario, &which), control, &mut observers);
+        let done = program.machine().hear(&Instance::of(scenario, &which), control, &mut observers);
         if !done || control.cancelled() {
             return Ok(Vec::new());
         }
@@ -130,7 +130,7 @@ impl Runner<'_> {
     /// `None`: the control cancelled it.
     fn run(&mut self, instance: &Instance) -> Option<Heard> {
         self.judge.sink = Heard::default();
-        let done = self.machine.run(instance, self.control, &mut self.judge);
+        let done = self.machine.hear(instance, self.control, &mut self.judge);
         (done && !self.control.cancelled()).then(|| std::mem::take(&mut self.judge.sink))
     }
 

@@ -286,7 +286,7 @@ pub(super) fn breach(shared: &Shared<'_>, question: u32, instance: &Instance) ->
         return Some(Breach { subject, measure: None, against: None });
     }
     let mut judge = Judge::new(scenario, asked, Answers::default());
-    shared.program.machine::<()>().run(instance, &Control::default(), &mut judge);
+    shared.program.machine::<()>().hear(instance, &Control::default(), &mut judge);
     let facts = judge.sink.facts.iter().filter(|fact| fact.breaks_rule && fact.subject.question == Some(question));
     let worst = facts.max_by_key(|fact| (fact.measure, std::cmp::Reverse(fact.subject)))?;
     let against = asked.allowed.as_ref().filter(|_| worst.subject.kind == Kind::NotInReference).and_then(|allowed| {

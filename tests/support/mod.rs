@@ -15,3 +15,9 @@ pub mod small_nets;
 pub mod spread;
 pub mod world;
 pub mod written;
+
+/// So many cases, or `STILLGATE_CASES` percent of that.
+pub fn share(count: u64) -> u64 {
+    let percent = std::env::var("STILLGATE_CASES").ok().and_then(|text| text.parse().ok()).unwrap_or(100);
+    count * percent / 100
+}

@@ -78,7 +78,6 @@ pub struct Kernel<L: Level, Q, P, T> {
     batch: Vec<u32>,
     /// Gates to evaluate, with the change that they heard of.
     dirty: Vec<(u32, T)>,
-    changed: Vec<NetId>,
     owners: Vec<NetId>,
     now: u64,
     /// Transitions of nets in this window.
@@ -136,7 +135,6 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
             due: Due::default(),
             batch: Vec::new(),
             dirty: Vec::new(),
-            changed: Vec::new(),
             owners: Vec::new(),
             now: 0,
             transitions: 0,

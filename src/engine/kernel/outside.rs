@@ -92,29 +92,14 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         let at_rest = end == End::Settled;
         self.find_owners(plan, at_rest);
         let mut due = std::mem::take(&mut self.due);
-        let inputs = &self.inputs;
-        let present = |net: NetId| inputs[net.index()].value() == Value::One;
-        self.agenda.take(time, &plan.stimulus, instance, quiet_since, present, &mut due);
+        self.agenda.take(time, &plan.stimulus, instance, quiet_since, &self.state, &mut due);
         if !due.moments.is_empty() {
-            let mut changed = std::mem::take(&mut self.changed);
-            changed.clear();
-            last_of_each(&due.becomes, |net, value| {
-                if self.inputs[net.index()].value() != Value::from(value) || due.bouncing.contains(&net) {
-                    changed.push(net);
-                }
-            });
-            self.turn_over(plan, at, &due.moments, &changed, due.settle_from, end, open, observer);
-            self.changed = changed;
+            self.turn_over(plan, at, &due.moments, &due.changed, due.settle_from, end, open, observer);
         }
 
         self.now = at;
         self.batch.clear();
         self.dirty.clear();
-        if due.set.len() > 1 {
-            due.set.reverse();
-            due.set.sort_by_key(|(net, _)| *net);
-            due.set.dedup_by_key(|(net, _)| *net);
-        }
         for &(net, value) in &due.set {
             let (old, new) = (self.inputs[net.index()], L::of(Value::from(value)));
             if old == new {
@@ -215,14 +200,5 @@ impl<L: Level, Q: Queue, P: Pending, T: Copy + Default> Kernel<L, Q, P, T> {
         let mut at_work = Vec::new();
         self.queue.each(&lines(&self.nodes, plan), |node| at_work.push(node));
         self.recurrence.first(&at_work)
-    }
-}
-
-/// Calls back for each net with the last value it is given.
-fn last_of_each(set: &[(NetId, bool)], mut each: impl FnMut(NetId, bool)) {
-    for (i, &(net, value)) in set.iter().enumerate() {
-        if !set[i + 1..].iter().any(|later| later.0 == net) {
-            each(net, value);
-        }
     }
 }

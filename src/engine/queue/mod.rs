@@ -141,7 +141,7 @@ mod tests {
     }
 
     proptest! {
-        #![proptest_config(ProptestConfig { cases: 600, failure_persistence: None, rng_seed: proptest::test_runner::RngSeed::Fixed(1), ..ProptestConfig::default() })]
+        #![proptest_config(ProptestConfig { cases: if cfg!(miri) { 6 } else { 600 }, failure_persistence: None, rng_seed: proptest::test_runner::RngSeed::Fixed(1), ..ProptestConfig::default() })]
         #[test]
         fn queues_agree_with_an_ordered_set(
             steps in proptest::collection::vec((any::<u8>(), prop_oneof![0u64..12, 0u64..1000, Just(0), 0u64..1_000_000]), 0..300),

@@ -69,7 +69,7 @@ impl<'a> Probe<'a> {
         }
         self.runs += 1;
         self.hears.1.sink.shown = false;
-        match self.machine.run(case, self.control, &mut self.hears) && !self.control.cancelled() {
+        match self.machine.hear(case, self.control, &mut self.hears) && !self.control.cancelled() {
             true => Ok(self.hears.1.sink.shown),
             false => Err(Cut::Interrupted),
         }

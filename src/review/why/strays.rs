@@ -35,7 +35,7 @@ impl Strays {
         while looked_at < SAMPLES.min(sweep.samples) && !control.cancelled() {
             sampler.fill(looked_at, &mut instance);
             judge.sink.sample = looked_at;
-            if !machine.run(&instance, control, &mut judge) {
+            if !machine.hear(&instance, control, &mut judge) {
                 break;
             }
             looked_at += 1;
