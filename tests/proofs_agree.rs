@@ -20,7 +20,7 @@ type Met = BTreeMap<(&'static str, &'static str), u64>;
 
 fn reviewed(kind: Kind, count: u64, met: &mut Met) {
     let percent: u64 = std::env::var("STILLGATE_CASES").ok().and_then(|text| text.parse().ok()).unwrap_or(100);
-    for (number, case) in cases(count * percent / 100, kind).into_iter().enumerate() {
+    for (number, case) in cases(count * percent / 100, kind).enumerate() {
         let mut rng = ChaCha8Rng::seed_from_u64(61);
         rng.set_stream(number as u64);
         let mut scenario = case.scenario;
