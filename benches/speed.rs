@@ -18,7 +18,7 @@ use stillgate::findings::{Asked, Judge};
 use stillgate::instance::{Instance, Sampler, Which};
 use stillgate::scenario::{Builder, NewStep, Scenario};
 use stillgate::statics::StateSet;
-use stillgate::sweep::{Tally, run_samples};
+use stillgate::sweep::{Tally, run_samples, run_samples_with_envelope};
 use workloads::{dividers, latch};
 
 fn main() {
@@ -162,6 +162,20 @@ fn sweep_of_2000_latches(bencher: Bencher<'_, '_>, threads: usize) {
         let tally = run_samples(&scenario, &program, &asked, 0..2000, threads, &Control::default());
         assert_eq!(tally.samples, 2000);
         assert_eq!(tally.windows[399].settled, 2000);
+        tally
+    });
+}
+
+/// The same with the times of all edges, as `sweep` and `review` keep them.
+#[divan::bench(args = [1, 2], sample_count = 10)]
+fn sweep_of_2000_latches_with_envelope(bencher: Bencher<'_, '_>, threads: usize) {
+    let scenario = latch(400);
+    let program = Program::new(&scenario, &Control::default()).expect("it begins at rest");
+    let asked = Asked::of(&scenario);
+    bencher.counter(ItemsCount::new(2000u64)).bench_local(|| {
+        let tally = run_samples_with_envelope(&scenario, &program, &asked, 0..2000, threads, &Control::default());
+        assert_eq!(tally.samples, 2000);
+        assert!(tally.envelope.is_some());
         tally
     });
 }

@@ -47,11 +47,13 @@ fn the_main_job_on_the_demonstration_leaves_its_files() {
         "result.json",
         "waves-typical.svg",
         "waves-typical.csv",
+        "waves-typical.vcd",
         "settling.svg",
         "settling.csv",
         "outcomes.csv",
         "findings.csv",
         "rules.csv",
+        "envelope.csv",
         "states.svg",
         "states.csv",
         "transitions.csv",
@@ -206,6 +208,53 @@ fn every_command_answers_in_json_and_in_text() {
 }
 
 #[test]
+fn completions_and_manual_know_every_command_and_option() {
+    let folder = tempfile::tempdir().unwrap();
+    let said = |arguments: &[&str]| {
+        let output = stillgate(folder.path(), arguments);
+        assert!(output.status.success(), "{arguments:?}: {}", text(&output.stderr));
+        text(&output.stdout)
+    };
+    let commands = ["review", "run", "sweep", "merge", "limit", "states", "prove", "check", "completions", "manual"];
+    for shell in ["bash", "zsh", "fish", "elvish", "powershell"] {
+        let script = said(&["completions", shell]);
+        for word in commands.iter().chain(&["proof-zones", "keep-every", "to-within"]) {
+            assert!(script.contains(word), "{shell} lacks {word}");
+        }
+    }
+    let page = said(&["manual"]);
+    assert!(page.contains(".TH stillgate 1") && commands.iter().all(|it| page.contains(it)), "{page}");
+    for command in commands {
+        let page = said(&["manual", command]);
+        assert!(page.contains(&format!(".TH stillgate-{command} 1")), "{page}");
+    }
+    assert!(said(&["manual", "review"]).contains("proof\\-zones"));
+    let output = stillgate(folder.path(), &["manual", "revew"]);
+    assert_eq!(output.status.code(), Some(2));
+    assert!(text(&output.stderr).contains("did you mean `review`?"));
+    assert_eq!(stillgate(folder.path(), &["completions", "tcsh"]).status.code(), Some(2));
+}
+
+#[test]
+fn every_command_can_be_quiet() {
+    let folder = tempfile::tempdir().unwrap();
+    let selector = project("scenarios/selector.toml");
+    for arguments in [
+        &["review", "--samples", "50", "--search", "50"][..],
+        &["sweep", "--samples", "50"],
+        &["run"],
+        &["limit", "--samples", "20", "--of", "spacing", "all", "--points", "3"],
+        &["prove"],
+        &["states"],
+        &["check"],
+    ] {
+        let output = stillgate(folder.path(), &[arguments, &[selector.as_str(), "--quiet"]].concat());
+        assert!(output.status.success(), "{arguments:?}: {}", text(&output.stderr));
+        assert!(output.stdout.is_empty() && output.stderr.is_empty(), "{arguments:?}: {}", text(&output.stderr));
+    }
+}
+
+#[test]
 fn a_folder_that_cannot_be_made_is_named() {
     let folder = tempfile::tempdir().unwrap();
     std::fs::write(folder.path().join("taken"), "a file").unwrap();
@@ -223,8 +272,15 @@ fn the_scenario_in_the_readme_is_a_good_one() {
     let output = stillgate(folder.path(), &["review", "latch.toml", "--samples", "500", "--strict"]);
     assert!(output.status.success(), "{}{}", text(&output.stdout), text(&output.stderr));
     assert!(text(&output.stdout).starts_with("Proved for every delay in the ranges; no failure found in 500 draws"));
-    // every document that it links to is there
+    // every document that it links to is there, and the heading within it
     for link in readme.split("](").skip(1).filter_map(|rest| rest.split(')').next()) {
-        assert!(Path::new(&project(link)).exists(), "the README links to {link}");
+        let (file, heading) = link.split_once('#').unwrap_or((link, ""));
+        assert!(Path::new(&project(file)).exists(), "the README links to {link}");
+        if !heading.is_empty() {
+            let document = std::fs::read_to_string(project(file)).unwrap();
+            let name = |line: &str| line.trim_start_matches('#').trim().to_lowercase().replace(' ', "-");
+            let mut headings = document.lines().filter(|line| line.starts_with('#'));
+            assert!(headings.any(|line| name(line) == heading), "the README links to {link}");
+        }
     }
 }

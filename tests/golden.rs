@@ -14,6 +14,8 @@ use std::sync::Arc;
 
 use cases::*;
 use stillgate::circuit::{Function, NetId};
+use stillgate::control::Control;
+use stillgate::engine::Program;
 use stillgate::findings::{Asked, Shape};
 use stillgate::flow::{Flow, FlowState, FlowTable, Reached, Transition};
 use stillgate::instance::Which;
@@ -23,8 +25,9 @@ use stillgate::output::text::{self, Page, Style};
 use stillgate::output::waves::{self, Picture};
 use stillgate::output::{bundle, charts, flow_tables, json, tables};
 use stillgate::review::{RunReport, StatesReport};
-use stillgate::scenario::{RefNet, Reference, Scenario};
+use stillgate::scenario::{Plot, RefNet, Reference, Scenario};
 use stillgate::statics::{Change, Race};
+use stillgate::sweep::{SweepReport, conclude, run_samples_with_envelope};
 
 /// Compares a text with its golden file, or writes the file.
 fn golden(name: &str, text: &str) {
@@ -187,6 +190,60 @@ fn a_second_run_is_dashed() {
 }
 
 #[test]
+fn a_run_is_laid_on_another_step_by_step() {
+    let scenario = lock();
+    let asked = Asked::of(&scenario);
+    let (front, behind) = (run(&scenario, Which::Max), run(&scenario, Which::Typ));
+    let svg = &waves::sheets(&Picture::of_run(&scenario, &asked, &front, "waves").against(&behind))[0].svg;
+    well_formed(svg);
+    golden("laid.svg", svg);
+}
+
+/// What a sweep of some draws says, with the times of edges.
+fn swept(scenario: &Scenario) -> SweepReport {
+    let asked = Asked::of(scenario);
+    let program = Program::with_rest(scenario, &rest(scenario));
+    let control = Control::default();
+    conclude(scenario, &asked, &run_samples_with_envelope(scenario, &program, &asked, 0..200, 1, &control))
+}
+
+#[test]
+fn bands_in_which_nets_may_change() {
+    let scenario = lock();
+    let (asked, sweep) = (Asked::of(&scenario), swept(&scenario));
+    let report = run(&scenario, Which::Typ);
+    let svg = &waves::sheets(&Picture::of_run(&scenario, &asked, &report, "waves").with_bands(&sweep))[0].svg;
+    well_formed(svg);
+    golden("bands.svg", svg);
+    golden("envelope.csv", &tables::envelope(&scenario, &sweep, sweep.envelope.as_deref().unwrap()));
+}
+
+#[test]
+fn bands_beside_long_quiet_stretches() {
+    let scenario = chain(6, 5, "250000");
+    let (asked, sweep) = (Asked::of(&scenario), swept(&scenario));
+    let report = run(&scenario, Which::Typ);
+    let svg = &waves::sheets(&Picture::of_run(&scenario, &asked, &report, "waves").with_bands(&sweep))[0].svg;
+    well_formed(svg);
+    golden("bands-quiet.svg", svg);
+}
+
+#[test]
+fn chosen_nets_come_in_the_order_chosen() {
+    let mut scenario = lock();
+    let nets = ["open_lower", "call_lower", "open_upper", "call_upper"].map(|name| net(&scenario, name));
+    scenario.plot = Plot { nets: Some(nets.to_vec()), from: Some(at("400")), to: None };
+    let asked = Asked::of(&scenario);
+    let mut report = run(&scenario, Which::Typ);
+    report.facts.push(glitch(net(&scenario, "hold_upper"), Shape::Static0, 3, "628", "631.1"));
+    report.facts.push(glitch(net(&scenario, "open_upper"), Shape::Static0, 1, "220", "231.1"));
+    let sheet = &waves::sheets(&Picture::of_run(&scenario, &asked, &report, "waves"))[0];
+    assert_eq!(sheet.nets, nets);
+    well_formed(&sheet.svg);
+    golden("chosen.svg", &sheet.svg);
+}
+
+#[test]
 fn a_part_of_a_run() {
     let scenario = chain(4, 20, "30");
     let asked = Asked::of(&scenario);
@@ -230,12 +287,16 @@ fn the_files_of_a_review() {
         "result.json",
         "waves-typical.svg",
         "waves-typical.csv",
+        "waves-typical.vcd",
         "waves-never-open-upper-1-open-lower-1-together.svg",
         "waves-never-open-upper-1-open-lower-1-together.csv",
+        "waves-never-open-upper-1-open-lower-1-together.vcd",
         "waves-critical-race-together.svg",
         "waves-critical-race-together.csv",
+        "waves-critical-race-together.vcd",
         "waves-glitch-open-lower-together.svg",
         "waves-glitch-open-lower-together.csv",
+        "waves-glitch-open-lower-together.vcd",
         "causes.csv",
         "case-never-open-upper-1-open-lower-1-together.toml",
         "case-critical-race-together.toml",

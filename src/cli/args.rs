@@ -42,6 +42,20 @@ pub enum Command {
     Prove(Proving),
     /// Reads the scenario, reports errors, prints what it understood
     Check(Checking),
+    /// Prints a script that completes commands and options in a shell
+    ///
+    /// For bash, for example: `stillgate completions bash > ~/.local/share/bash-completion/completions/stillgate`
+    Completions {
+        /// For which shell
+        shell: clap_complete::Shell,
+    },
+    /// Prints the manual page of the program, or of one of its commands
+    ///
+    /// It is made of the same definitions as --help. To read it: `stillgate manual | man -l -`
+    Manual {
+        /// A command, as in `stillgate manual review`; without it the page of the program
+        command: Option<String>,
+    },
 }
 
 #[derive(Debug, Args)]
@@ -226,10 +240,13 @@ pub struct Running {
     /// sample:N~3), or an instance file
     #[arg(long, value_name = "CASE", default_value = "typ")]
     pub delays: String,
+    /// A second case, named as with --delays: draws one more picture, with it behind the first, thin and dashed
+    #[arg(long, value_name = "CASE")]
+    pub against: Option<String>,
     /// Under this condition of the scenario, in place of its own delays
     #[arg(long, value_name = "NAME")]
     pub condition: Option<String>,
-    /// Nets to draw, in this order, separated by commas; default all that fit
+    /// Nets to draw, in this order, separated by commas; default those of [plot], else all that fit
     #[arg(long, value_name = "A,B,...", value_delimiter = ',')]
     pub nets: Vec<String>,
     /// Exit with 1 if a rule is broken or something could not be judged in this run

@@ -4,15 +4,18 @@ use std::io::{IsTerminal, Write};
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::sync::Arc;
-use std::sync::atomic::Ordering;
+use std::sync::atomic::{AtomicBool, Ordering};
+use std::time::Duration;
 
 use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
 
 use super::args::{Draws, Folder, Input};
+use crate::circuit::NetId;
 use crate::control::Control;
 use crate::delay::Marginal;
-use crate::engine::Program;
+use crate::engine::{Observer, Program};
 use crate::limit::LimitError;
+use crate::logic::Value;
 use crate::output::bundle::{self, Bundle};
 use crate::output::text::{Page, Style};
 use crate::reader::{self, Diagnostics, Loaded, ReadError};
@@ -20,6 +23,7 @@ use crate::review::{Call, ReviewError};
 use crate::scenario::Scenario;
 use crate::statics::NoRest;
 use crate::sweep::{Overrides, Refusal};
+use crate::time::Time;
 
 /// The built-in demonstration.
 const DEMONSTRATION: &str = include_str!("../../scenarios/interlock.toml");
@@ -136,15 +140,30 @@ pub fn page<'a>(called: Option<&'a str>, options: &'a str) -> Page<'a> {
     let terminal = std::io::stdout();
     Page {
         style: if colour(&terminal) { Style::Ansi } else { Style::Plain },
-        width: console::Term::stdout().size_checked().map_or(WIDTH, |(_, columns)| usize::from(columns)),
+        width: terminal_width(),
         scenario: called,
         options,
         folder: "",
     }
 }
 
-/// Columns where there is no terminal.
+/// Columns where there is no terminal, so that files are the same on every machine; and the most on one.
 const WIDTH: usize = 100;
+
+/// Columns of a text on standard output.
+pub fn terminal_width() -> usize {
+    let terminal = console::Term::stdout().size_checked().map(|(_, columns)| usize::from(columns));
+    width(std::io::stdout().is_terminal(), std::env::var("COLUMNS").ok().as_deref(), terminal)
+}
+
+/// What the user says of the width of a terminal counts more than what the terminal says.
+fn width(is_terminal: bool, said: Option<&str>, terminal: Option<usize>) -> usize {
+    if !is_terminal {
+        return WIDTH;
+    }
+    let said = said.and_then(|columns| columns.trim().parse::<usize>().ok()).filter(|columns| *columns > 0);
+    said.or(terminal).unwrap_or(WIDTH).min(WIDTH)
+}
 
 /// Writes to standard error. Nobody may be listening; that is no reason to fail.
 pub fn say_aside(text: &str) {
@@ -255,17 +274,61 @@ pub fn control(quiet: bool, what: &'static str) -> (Control, Option<ProgressBar>
     if quiet {
         return (control, None);
     }
-    let bar = ProgressBar::with_draw_target(Some(0), ProgressDrawTarget::stderr_with_hz(10));
-    if let Ok(style) = ProgressStyle::with_template("{msg} {wide_bar} {human_pos}/{human_len} {per_sec} eta {eta}") {
-        bar.set_style(style);
-    }
+    // how much there is to do is known once the work reports it; until then, and after, the time that it takes is shown
+    let bar = ProgressBar::with_draw_target(None, ProgressDrawTarget::stderr_with_hz(10));
+    bar.set_style(style(WAITING));
     bar.set_message(what);
+    bar.enable_steady_tick(Duration::from_millis(250));
     let shown = bar.clone();
+    let counting = AtomicBool::new(false);
     control.progress = Some(Arc::new(move |done, total| {
+        let counts = done < total;
+        if counting.swap(counts, Ordering::Relaxed) != counts {
+            shown.set_style(style(if counts { COUNTING } else { WAITING }));
+        }
         shown.set_length(total);
         shown.set_position(shown.position().max(done));
     }));
     (control, Some(bar))
+}
+
+/// Progress while nobody knows how much is left.
+const WAITING: &str = "{msg} {elapsed}";
+/// Progress with rate and time left.
+const COUNTING: &str = "{msg} {wide_bar} {human_pos}/{human_len} {per_sec} {eta} left";
+/// Progress of a run: how many transitions it takes is known at its end.
+const METERED: &str = "{msg} {elapsed} {human_pos} transitions {per_sec}";
+
+fn style(template: &str) -> ProgressStyle {
+    ProgressStyle::with_template(template).unwrap_or_else(|_| ProgressStyle::default_bar())
+}
+
+/// Counts the transitions of a run and shows them from time to time.
+pub struct Meter<'a> {
+    bar: Option<&'a ProgressBar>,
+    count: u64,
+}
+
+impl<'a> Meter<'a> {
+    /// Shows them on this bar, if there is one.
+    pub fn new(bar: Option<&'a ProgressBar>) -> Meter<'a> {
+        Meter { bar, count: 0 }
+    }
+}
+
+impl Observer for Meter<'_> {
+    type Tag = ();
+
+    fn change(&mut self, _at: Time, _net: NetId, _new: Value, _cause: ()) {
+        const STEP: u64 = 1 << 16;
+        self.count += 1;
+        if let (Some(bar), 0) = (self.bar, self.count % STEP) {
+            if self.count == STEP {
+                bar.set_style(style(METERED));
+            }
+            bar.set_position(self.count);
+        }
+    }
 }
 
 /// Takes the progress bar away.
@@ -278,6 +341,24 @@ pub fn finish(bar: Option<ProgressBar>) {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn the_width_is_that_of_the_terminal_and_of_a_file_always_the_same() {
+        assert_eq!(width(false, Some("60"), None), 100);
+        assert_eq!(width(true, None, Some(72)), 72);
+        assert_eq!(width(true, Some("60"), Some(72)), 60);
+        assert_eq!(width(true, Some("wide"), Some(72)), 72);
+        assert_eq!(width(true, Some("0"), None), 100);
+        assert_eq!(width(true, None, Some(250)), 100);
+    }
+
+    #[test]
+    fn progress_shows_rate_and_time_left_in_every_style() {
+        for template in [WAITING, COUNTING, METERED] {
+            assert!(ProgressStyle::with_template(template).is_ok(), "{template}");
+        }
+        assert!(COUNTING.contains("{per_sec}") && COUNTING.contains("{eta}") && METERED.contains("{per_sec}"));
+    }
 
     #[test]
     fn a_contradiction_of_views_ends_with_code_3_and_asks_for_a_report() {

@@ -4,6 +4,7 @@ mod args;
 mod check;
 mod common;
 mod limit;
+mod manual;
 mod merge;
 mod prove;
 mod review;
@@ -13,13 +14,15 @@ mod sweep;
 
 use std::process::ExitCode;
 
-use clap::Parser;
+use clap::{CommandFactory, FromArgMatches};
 
 use args::{Arguments, Command};
 
 /// Runs the program with the arguments it was called with.
 pub fn main() -> ExitCode {
-    let arguments = match Arguments::try_parse() {
+    let command = Arguments::command().term_width(common::terminal_width());
+    let arguments = command.try_get_matches().and_then(|found| Arguments::from_arg_matches(&found));
+    let arguments = match arguments {
         Ok(arguments) => arguments,
         Err(error) => {
             // help and version go to standard output and are no failure
@@ -37,6 +40,8 @@ pub fn main() -> ExitCode {
         Command::States(it) => states::run(&it),
         Command::Prove(it) => prove::run(&it),
         Command::Check(it) => check::run(&it),
+        Command::Completions { shell } => manual::completions(shell),
+        Command::Manual { command } => manual::manual(command.as_deref()),
     };
     match done {
         Ok(code) => code,

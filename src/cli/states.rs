@@ -11,7 +11,7 @@ pub fn run(arguments: &Looking) -> Result<ExitCode, Failure> {
     let input = &arguments.input;
     let scenario = load(input)?.scenario;
     let folder = folder(input, &arguments.folder)?;
-    let (control, bar) = control(true, "states");
+    let (control, bar) = control(input.quiet, "states");
     let report = review::states(&scenario, &control)?;
     finish(bar);
     if control.cancelled() {

@@ -110,7 +110,7 @@ fn begun(arguments: &Long) -> Result<LoadedPart, Failure> {
     let input = &arguments.sweeping.input;
     let loaded = load(input)?;
     let name = Path::new(&loaded.name).file_name().map_or_else(String::new, |it| it.to_string_lossy().into_owned());
-    let text = loaded.text.to_string();
+    let text = loaded.self_contained();
     let mut scenario = loaded.scenario;
     let overrides = overrides(&arguments.sweeping.draws);
     overrides.apply(&mut scenario.plan);
@@ -135,7 +135,7 @@ fn begun(arguments: &Long) -> Result<LoadedPart, Failure> {
         wanted: wanted.clone().map_or((0, plan.samples), |it| (it.start, it.end)),
         piece: wanted.is_some(),
         curve: arguments.until.clone().map(Curve::new),
-        cases: Cases::new(&scenario, &asked),
+        cases: Cases::with_envelope(&scenario, &asked),
     };
     Ok(LoadedPart { part, scenario, asked })
 }

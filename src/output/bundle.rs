@@ -11,7 +11,7 @@ use crate::output::flow_map::{self, Map};
 use crate::output::instance::write_instance;
 use crate::output::search::case_files;
 use crate::output::waves::{self, Nets, Picture};
-use crate::output::{causes, charts, convergence, flow_tables, json, tables, words};
+use crate::output::{causes, charts, convergence, dump, flow_tables, json, tables, words};
 use crate::proof::Proof;
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
@@ -82,17 +82,10 @@ impl Bundle {
         }
     }
 
-    /// Sheets as `stem.svg`, `stem-2.svg`, …, and the table of all nets as `stem.csv`.
+    /// Sheets as `stem.svg`, `stem-2.svg`, …, the table of all nets as `stem.csv`, and their dump as `stem.vcd`, if the run
+    /// was kept whole.
     fn add_waves(&mut self, stem: &str, picture: &Picture<'_>, run: &RunReport) {
-        let sheets = waves::sheets(picture);
-        if let Some(left_out) = sheets.first().map(|sheet| sheet.left_out.len()).filter(|n| *n > 0) {
-            let nets = words::many(left_out as u64, "net");
-            self.notes.push(format!("{stem}.svg leaves out {nets}; {stem}.csv has all of them."));
-        }
-        for (i, sheet) in sheets.into_iter().enumerate() {
-            let number = if i == 0 { String::new() } else { format!("-{}", i + 1) };
-            self.add(&format!("{stem}{number}.svg"), sheet.svg);
-        }
+        self.add_sheets(stem, picture);
         if let Some(cut) = run.trace.cut {
             let until = cut.after.from_start().rounded();
             let later = words::many(cut.transitions, "later transition");
@@ -102,6 +95,34 @@ impl Bundle {
             self.notes.push(format!("{stem}.csv is left out: it would have {} cells.", words::count(cells)));
         } else {
             self.add(&format!("{stem}.csv"), waves::csv(picture.scenario, &run.trace));
+        }
+        if run.trace.cut.is_none() {
+            self.add(&format!("{stem}.vcd"), dump::vcd(picture.scenario, &run.which.words(), &run.trace));
+        }
+    }
+}
+
+impl Bundle {
+    /// Says so where a run was too long for its dump.
+    fn note_dump(&mut self, stem: &str, run: &RunReport) {
+        if run.trace.cut.is_some() {
+            let case = run.which.key();
+            self.notes.push(format!(
+                "{stem}.vcd is left out: the run is too long to be kept; run --delays {case} writes it."
+            ));
+        }
+    }
+
+    /// Sheets as `stem.svg`, `stem-2.svg`, …
+    fn add_sheets(&mut self, stem: &str, picture: &Picture<'_>) {
+        let sheets = waves::sheets(picture);
+        if let Some(left_out) = sheets.first().map(|sheet| sheet.left_out.len()).filter(|n| *n > 0) {
+            let nets = words::many(left_out as u64, "net");
+            self.notes.push(format!("{stem}.svg leaves out {nets}; the table of the run has all of them."));
+        }
+        for (i, sheet) in sheets.into_iter().enumerate() {
+            let number = if i == 0 { String::new() } else { format!("-{}", i + 1) };
+            self.add(&format!("{stem}{number}.svg"), sheet.svg);
         }
     }
 }
@@ -115,16 +136,29 @@ pub fn table_fits(scenario: &Scenario, run: &RunReport) -> Result<(), u64> {
     if cells > MOST_CELLS || run.trace.cut.is_some() { Err(cells) } else { Ok(()) }
 }
 
-/// The files of one run: `waves-<case>.svg`, one a sheet, and `waves-<case>.csv`. `nets` chooses lanes.
-pub fn of_run(scenario: &Scenario, asked: &Asked, run: &RunReport, nets: Option<Vec<NetId>>) -> Bundle {
+/// The files of one run: `waves-<case>.svg`, one a sheet, `waves-<case>.csv` and `waves-<case>.vcd`; with another run also
+/// `waves-<case>-against-<other>.svg`, in which that lies behind. `nets` chooses lanes and their order in place of the
+/// scenario.
+pub fn of_run(
+    scenario: &Scenario,
+    asked: &Asked,
+    run: &RunReport,
+    against: Option<&RunReport>,
+    nets: Option<Vec<NetId>>,
+) -> Bundle {
     let stem = format!("waves-{}", safe(&run.which.words()));
     let mut bundle = Bundle::default();
-    let nets = nets.map_or(Nets::All, Nets::These);
     // the paths of the worst finding, if it breaks a rule
     let worst = run.facts.first().filter(|fact| fact.breaks_rule);
     let race = worst.and_then(|fact| run.race(scenario, asked, fact));
-    let picture = Picture { nets, race, ..Picture::of_run(scenario, asked, run, &stem) };
+    let mut picture = Picture { race, ..Picture::of_run(scenario, asked, run, &stem) };
+    picture.nets = nets.map_or(picture.nets, Nets::These);
     bundle.add_waves(&stem, &picture, run);
+    if let Some(other) = against {
+        let beside = format!("{stem}-against-{}", safe(&other.which.words()));
+        let picture = Picture { id: beside.clone(), ..picture }.against(other);
+        bundle.add_sheets(&beside, &picture);
+    }
     bundle
 }
 
@@ -141,6 +175,13 @@ fn of_searched(scenario: &Scenario, asked: &Asked, report: &SweepReport, search:
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));
     bundle.add("findings.csv", tables::findings(scenario, asked, report));
     bundle.add("rules.csv", tables::rules(scenario, report, search));
+    if let Some(envelope) = &report.envelope {
+        bundle.add("envelope.csv", tables::envelope(scenario, report, envelope));
+        let (some, all) = (envelope.moments(), scenario.stimulus.moments.len());
+        if some < all {
+            bundle.notes.push(format!("envelope.csv has the first {some} of {all} steps and clock edges."));
+        }
+    }
     if report.stopped.is_some() {
         bundle.add("convergence.svg", convergence::svg(scenario, asked, report));
         bundle.add("convergence.csv", convergence::csv(scenario, asked, report));
@@ -159,8 +200,9 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("result.json", json::review(scenario, review));
     if let Some(run) = &review.typical {
-        let picture = Picture::of_run(scenario, &review.asked, run, "waves-typical");
+        let picture = Picture::of_run(scenario, &review.asked, run, "waves-typical").with_bands(&review.sweep);
         bundle.add_waves("waves-typical", &picture, run);
+        bundle.note_dump("waves-typical", run);
     }
     let mut stems = BTreeSet::from(["waves-typical".to_string()]);
     let mut shown: Vec<&(usize, RunReport)> =
@@ -171,13 +213,17 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
         let subject = &review.sweep.findings[*finding].subject;
         let stem = unique(causes::stem(scenario, &review.asked, subject, "waves"), &mut stems);
         let why = review.why.get(*finding).and_then(Option::as_ref);
-        let picture = Picture {
-            nets: Nets::Telling,
-            race: why.and_then(|why| why.race.clone()),
-            range: around(subject, run),
-            ..Picture::of_run(scenario, &review.asked, run, &stem)
-        };
+        let mut picture = Picture::of_run(scenario, &review.asked, run, &stem);
+        picture.race = why.and_then(|why| why.race.clone());
+        if picture.nets == Nets::All {
+            picture.nets = Nets::Telling;
+        }
+        picture.range = picture.range.or_else(|| around(subject, run));
+        if let Some(typical) = review.typical.as_ref().filter(|typical| typical.which != run.which) {
+            picture = picture.against(typical);
+        }
         bundle.add_waves(&stem, &picture, run);
+        bundle.note_dump(&stem, run);
     }
     let all = review.sweep.findings.len();
     if shown.len() < all {
@@ -208,6 +254,7 @@ pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
     }
     let sweep = of_searched(scenario, &review.asked, &review.sweep, review.search.as_ref());
     bundle.files.extend(sweep.files);
+    bundle.notes.extend(sweep.notes);
     bundle.files.extend(of_states(scenario, &review.states).files);
     bundle
 }

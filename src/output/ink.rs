@@ -12,7 +12,7 @@ pub(super) const FINDING: &str = "#b3420f";
 pub(super) const REST: &str = "#2f6f3e";
 /// Path A of a race: also solid, with its letter.
 pub(super) const FIRST: &str = "#0b6b7d";
-/// Path B of a race, and a second run on top of the first: also dashed.
+/// Path B of a race: also dashed.
 pub(super) const SECOND: &str = "#7a3fa0";
 /// Body text, pixels.
 pub(super) const BODY: f64 = 12.0;

@@ -10,6 +10,7 @@ mod causes;
 pub mod charts;
 pub mod convergence;
 mod deciding;
+pub mod dump;
 pub mod flow_map;
 pub mod flow_tables;
 mod flow_words;

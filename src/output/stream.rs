@@ -1,7 +1,7 @@
 //! A file that is written while the work goes on, and is complete under its name or not there.
 
 use std::fs::{self, File};
-use std::io::{self, BufWriter, Write};
+use std::io::{self, BufReader, BufWriter, Write};
 use std::path::{Path, PathBuf};
 
 use super::bundle::{WriteError, beside};
@@ -23,6 +23,35 @@ impl Stream {
     pub fn open(place: &Path) -> io::Result<Stream> {
         let file = File::create(beside(place))?;
         Ok(Stream { place: place.to_path_buf(), to: Some(BufWriter::with_capacity(BUFFER, file)) })
+    }
+
+    /// Writes the file once more: `pass` reads what there is and writes what is to be there. Nothing grows in memory.
+    ///
+    /// Errors: what the system says, or `pass`; then nothing of the file is left.
+    pub fn again(
+        mut self,
+        pass: impl FnOnce(BufReader<File>, &mut BufWriter<File>) -> io::Result<()>,
+    ) -> io::Result<Stream> {
+        self.flush()?;
+        let first = beside(&self.place);
+        let second = beside(&first);
+        let written = File::open(&first).and_then(|from| {
+            let mut to = BufWriter::with_capacity(BUFFER, File::create(&second)?);
+            pass(BufReader::with_capacity(BUFFER, from), &mut to)?;
+            to.flush()?;
+            fs::rename(&second, &first)?;
+            Ok(to)
+        });
+        match written {
+            Ok(to) => {
+                self.to = Some(to);
+                Ok(self)
+            }
+            Err(error) => {
+                let _ = fs::remove_file(&second);
+                Err(error)
+            }
+        }
     }
 
     /// Moves the file, whole, into its place; a file of that name is replaced.
@@ -88,6 +117,24 @@ mod tests {
         kept.keep().unwrap();
         assert_eq!(names(folder.path()), ["a.csv"]);
         assert_eq!(fs::read_to_string(&place).unwrap(), long);
+    }
+
+    #[test]
+    fn a_second_pass_replaces_the_first_or_leaves_nothing() {
+        let folder = tempfile::tempdir().unwrap();
+        let place = folder.path().join("a.vcd");
+        let written = || {
+            let mut stream = Stream::open(&place).unwrap();
+            stream.write_all(&b"0123456789".repeat(BUFFER)).unwrap();
+            stream
+        };
+        let again = written().again(|mut from, to| io::copy(&mut io::Read::take(&mut from, 70_000), to).map(drop));
+        again.unwrap().keep().unwrap();
+        assert_eq!(names(folder.path()), ["a.vcd"]);
+        assert_eq!(fs::read(&place).unwrap().len(), 70_000);
+        fs::remove_file(&place).unwrap();
+        assert!(written().again(|_, _| Err(io::Error::other("full"))).is_err());
+        assert_eq!(names(folder.path()), [""; 0]);
     }
 
     #[test]

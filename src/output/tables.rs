@@ -1,11 +1,12 @@
 //! Results as CSV. Units stand in the headers; what is missing is an empty field, never 0; the order is fixed.
 
 use crate::findings::{Asked, Reason};
+use crate::logic::Value;
 use crate::output::words::{self, six};
 use crate::review::{Cell, Compared, compare, departure_words};
 use crate::scenario::{Condition, Scenario};
 use crate::search::SearchReport;
-use crate::sweep::{SweepReport, Worst};
+use crate::sweep::{Envelope, SweepReport, Worst};
 use crate::time::Decimal;
 
 /// Writes a table into memory, where only rows of unequal length could fail; the tables here have none.
@@ -50,6 +51,44 @@ pub fn outcomes(scenario: &Scenario, report: &SweepReport) -> String {
                 ];
                 row.extend(circuit.nets().map(|net| outcome.state.get(net.index()).to_string()));
                 to.write_record(&row)?;
+            }
+        }
+        Ok(())
+    })
+}
+
+/// Between which times each edge came, over all samples, with the scenario's own delays: by step, then net, then number of
+/// the edge in the step's window.
+///
+/// Columns: step, net, edge (from 1), direction (`rise`, `fall`, `X`), earliest and latest from the start of the window,
+/// samples that had this edge, of (samples in which the step named the window). A row `more than 64` (or fewer, where there
+/// are many nets and steps) counts samples with edges that are not told apart.
+pub fn envelope(scenario: &Scenario, report: &SweepReport, envelope: &Envelope) -> String {
+    let (circuit, unit) = (&scenario.circuit, scenario.unit);
+    let [earliest, latest] = ["earliest", "latest"].map(|it| format!("{it} [{unit}]"));
+    write(|to| {
+        to.write_record(["step", "net", "edge", "direction", &earliest, &latest, "samples", "of"])?;
+        for window in &report.windows {
+            let step = name(words::step(scenario, Some(window.moment)));
+            for net in circuit.nets() {
+                let mut row = |edge: String, way: &str, times: [String; 2], samples: u64| {
+                    let [earliest, latest] = &times;
+                    let (samples, of) = (samples.to_string(), window.named.to_string());
+                    to.write_record([&step, circuit.name(net), &edge, way, earliest, latest, &samples, &of])
+                };
+                for edge in envelope.of(window.moment, net) {
+                    let way = match edge.to {
+                        Value::Zero => "fall",
+                        Value::One => "rise",
+                        Value::X => "X",
+                    };
+                    let times = [edge.earliest, edge.latest].map(|it| it.decimal(unit).to_string());
+                    row((edge.number + 1).to_string(), way, times, edge.samples)?;
+                }
+                let more = envelope.more(window.moment, net);
+                if more > 0 {
+                    row(format!("more than {}", envelope.edges()), "", Default::default(), more)?;
+                }
             }
         }
         Ok(())

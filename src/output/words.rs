@@ -44,6 +44,12 @@ pub(super) fn some_names(names: &[&str], most: usize) -> String {
     format!("{} and {} more", names[..most].join(", "), count((names.len() - most) as u64))
 }
 
+/// Steps by their labels, for a note: `“upper calls”, “lower calls”`; of more than `most` the number of the others.
+pub(super) fn labels(steps: &[&str], most: usize) -> String {
+    let quoted: Vec<String> = steps.iter().map(|step| format!("“{step}”")).collect();
+    some_names(&quoted.iter().map(String::as_str).collect::<Vec<_>>(), most)
+}
+
 /// What a finding or fact is about, in words.
 pub(super) struct Named<'a> {
     pub kind: &'static str,

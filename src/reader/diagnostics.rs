@@ -12,6 +12,8 @@ use serde::Serialize;
 pub struct Diagnostics {
     name: String,
     text: Arc<str>,
+    /// Lines before the text: more than none where the text is only a part of what was read.
+    before: usize,
     items: Vec<Diagnostic>,
 }
 
@@ -62,7 +64,7 @@ const LINES_APART: usize = 40;
 impl Diagnostics {
     pub(super) fn new(name: &str, text: Arc<str>, mut placed: Vec<Placed>) -> Diagnostics {
         placed.sort_by_key(|fault| fault.span.start);
-        let lines = Lines::of(&text);
+        let lines = Lines::of(&text, 0);
         let items = placed.into_iter().map(|fault| {
             let span = lines.shown(&text, fault.span);
             let (line, column) = lines.place(&text, span.start);
@@ -75,7 +77,24 @@ impl Diagnostics {
             Diagnostic { line, column, message: fault.message, help: fault.help, related, span }
         });
         let items = items.collect();
-        Diagnostics { name: name.to_string(), text, items }
+        Diagnostics { name: name.to_string(), text, before: 0, items }
+    }
+
+    /// One fault of a text of which there is only this line.
+    pub(super) fn in_line(
+        name: &str,
+        line: usize,
+        text: &str,
+        span: Range<usize>,
+        message: String,
+        help: String,
+    ) -> Diagnostics {
+        let text: Arc<str> = text.into();
+        let lines = Lines::of(&text, line.saturating_sub(1));
+        let span = lines.shown(&text, span);
+        let (line, column) = lines.place(&text, span.start);
+        let item = Diagnostic { line, column, message, help, related: Vec::new(), span };
+        Diagnostics { name: name.to_string(), before: lines.before, text, items: vec![item] }
     }
 
     /// The name of the text, as in `file:line:column`.
@@ -91,7 +110,7 @@ impl Diagnostics {
     /// For people: each with `name:line:column`, the line, and its remedy; with colours if `styled`.
     pub fn render(&self, styled: bool) -> String {
         let renderer = if styled { Renderer::styled() } else { Renderer::plain() };
-        let lines = Lines::of(&self.text);
+        let lines = Lines::of(&self.text, self.before);
         let mut all = String::new();
         for item in &self.items {
             let mut group = Group::with_title(Level::ERROR.primary_title(item.message.as_str()));
@@ -168,23 +187,26 @@ impl std::error::Error for Diagnostics {}
 struct Lines {
     starts: Vec<usize>,
     len: usize,
+    /// Lines before the text.
+    before: usize,
 }
 
 impl Lines {
-    fn of(text: &str) -> Lines {
+    fn of(text: &str, before: usize) -> Lines {
         let breaks = text.bytes().enumerate().filter(|(_, byte)| *byte == b'\n').map(|(at, _)| at + 1);
-        Lines { starts: [0].into_iter().chain(breaks).collect(), len: text.len() }
+        Lines { starts: [0].into_iter().chain(breaks).collect(), len: text.len(), before }
     }
 
     /// Bytes of a line (from 1) without its line break.
     fn range(&self, line: usize) -> Range<usize> {
+        let line = line - self.before;
         let end = self.starts.get(line).map_or(self.len, |next| next - 1);
         self.starts[line - 1]..end
     }
 
     /// The number of the line that holds this byte.
     fn line(&self, at: usize) -> usize {
-        self.starts.partition_point(|start| *start <= at)
+        self.before + self.starts.partition_point(|start| *start <= at)
     }
 
     fn place(&self, text: &str, at: usize) -> (usize, usize) {

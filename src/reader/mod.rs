@@ -4,6 +4,7 @@
 //! Numbers stay the text they are in the file until their unit is known, so no time passes through a float.
 
 mod diagnostics;
+mod dump;
 mod file;
 mod gates;
 mod instance;
@@ -11,6 +12,7 @@ mod part;
 mod rules;
 mod start;
 mod steps;
+mod stimulus;
 mod syntax;
 mod walk;
 
@@ -26,7 +28,7 @@ pub use instance::{load_instance, read_instance};
 pub use part::{LoadedPart, MAX_PART_BYTES, load_part, read_part, scenario_of};
 
 use crate::delay::Marginal;
-use crate::scenario::{BeginAt, Builder, Fault, Mark, Said, Scenario, Vary};
+use crate::scenario::{BeginAt, Builder, Fault, Mark, NewPlot, Said, Scenario, Vary};
 use crate::time::Unit;
 use diagnostics::Placed;
 use walk::{Value, Walk};
@@ -42,9 +44,23 @@ pub struct Loaded {
     pub text: Arc<str>,
     /// The name of the text, as in `file:line:column`.
     pub name: String,
+    /// Places of the text that name another file, each with what says the same without it.
+    replaced: Option<stimulus::Replaced>,
 }
 
 impl Loaded {
+    /// The text such that it needs no other file: the dump that it names is in it, as far as it matters. Read by [`read`], it
+    /// gives the same scenario.
+    pub fn self_contained(&self) -> String {
+        let mut text = self.text.to_string();
+        if let Some(replaced) = &self.replaced {
+            for (place, with) in replaced.pieces.iter().rev() {
+                text.replace_range(place.clone(), with);
+            }
+        }
+        text
+    }
+
     /// Faults found later, such as an ambiguous start, placed in the text.
     pub fn diagnose(&self, faults: Vec<Fault>) -> Diagnostics {
         place(&self.name, self.text.clone(), &self.spans, faults)
@@ -57,7 +73,7 @@ impl Loaded {
 /// [`MAX_BYTES`]), else all faults of the scenario.
 pub fn load(path: &Path) -> Result<Loaded, ReadError> {
     let text = file::text(path)?;
-    Ok(read(&text, &path.display().to_string())?)
+    Ok(read_beside(&text, &path.display().to_string(), Some(path))?)
 }
 
 /// Reads the text of a scenario. `name` is what diagnostics call it; its stem is the title if the text gives none.
@@ -82,15 +98,27 @@ pub fn load(path: &Path) -> Result<Loaded, ReadError> {
 /// assert_eq!(wrong.items()[0].help, "did you mean `q`?");
 /// ```
 ///
-/// Errors: all faults of the text at once; of a text that is no TOML only the faults of its syntax.
+/// Errors: all faults of the text at once; of a text that is no TOML only the faults of its syntax. A text that names a dump
+/// must come from a file ([`load`]).
 pub fn read(text: &str, name: &str) -> Result<Loaded, Diagnostics> {
+    read_beside(text, name, None)
+}
+
+/// As [`read`]; other files are looked for beside this one.
+fn read_beside(text: &str, name: &str, file: Option<&Path>) -> Result<Loaded, Diagnostics> {
     let text: Arc<str> = text.into();
     let mut walk = Walk::new();
     let mut builder = Builder::new(stem(name));
     let Some(table) = syntax::parse(&mut walk, &text) else {
         return Err(place(name, text, &walk.spans, walk.faults.into_vec()));
     };
-    root(&mut walk, &mut builder, table.get_ref());
+    let dump = root(&mut walk, &mut builder, table.get_ref());
+    let replaced = match &dump {
+        Some(dump) if walk.faults.is_empty() => {
+            stimulus::apply(dump, &mut walk, &mut builder, table.get_ref(), (name, file)).map_err(|found| *found)?
+        }
+        _ => None,
+    };
     let said = ["initial", "begin", "inputs", "gates"].into_iter().find_map(|wanted| {
         table.get_ref().keys().find(|key| key.get_ref().as_ref() == wanted).map(toml::Spanned::span)
     });
@@ -101,7 +129,7 @@ pub fn read(text: &str, name: &str) -> Result<Loaded, Diagnostics> {
         Some(fault) => Err(vec![fault]),
     });
     match checked {
-        Ok(scenario) => Ok(Loaded { scenario, spans: walk.spans, text, name: name.to_string() }),
+        Ok(scenario) => Ok(Loaded { scenario, spans: walk.spans, text, name: name.to_string(), replaced }),
         Err(faults) => Err(place(name, text, &walk.spans, faults)),
     }
 }
@@ -110,7 +138,7 @@ fn stem(name: &str) -> String {
     Path::new(name).file_stem().map_or_else(|| name.to_string(), |stem| stem.to_string_lossy().into_owned())
 }
 
-const KEYS: [&str; 18] = [
+const KEYS: [&str; 19] = [
     "title",
     "time_unit",
     "outputs",
@@ -129,12 +157,15 @@ const KEYS: [&str; 18] = [
     "limits",
     "sweep",
     "padding",
+    "plot",
 ];
 
 /// Keys that later versions will read; until then they are named in every result.
-const RESERVED: [&str; 4] = ["cells", "parts", "split", "plot"];
+const RESERVED: [&str; 3] = ["cells", "parts", "split"];
 
-fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) {
+/// Tells the builder everything; a dump is left for later, when inputs and clocks are known.
+fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) -> Option<stimulus::NewDump> {
+    let mut dump = None;
     for (key, value) in table.iter() {
         match key.get_ref().as_ref() {
             "title" => {
@@ -175,26 +206,23 @@ fn root(walk: &mut Walk, builder: &mut Builder, table: &DeTable<'_>) {
             "groups" => gates::groups(walk, builder, value),
             "conditions" => gates::conditions(walk, builder, value),
             "steps" => steps::steps(walk, builder, value),
-            "stimulus" => steps::stimulus(walk, builder, value),
+            "stimulus" => dump = stimulus::stimulus(walk, builder, value, table),
             "clocks" => steps::clocks(walk, builder, value),
             "rules" => rules::rules(walk, builder.rules(), value),
             "reference" => gates::reference(walk, builder, value),
             "limits" => limits(walk, builder, value),
             "sweep" => sweep(walk, builder, value),
             "padding" => padding(walk, builder, value),
+            "plot" => plot(walk, builder, value),
             reserved if RESERVED.contains(&reserved) => {
                 let mark = walk.mark(key.span());
                 let sentence = Said::at(format!("`{reserved}`: not analysed yet; it has no effect"), mark);
-                // how pictures look changes no verdict
-                if reserved == "plot" {
-                    builder.note(sentence)
-                } else {
-                    builder.not_analysed(sentence)
-                };
+                builder.not_analysed(sentence);
             }
             _ => walk.unknown_key(key, &KEYS, "the file"),
         }
     }
+    dump
 }
 
 fn inputs(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
@@ -276,6 +304,23 @@ fn padding(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
             _ => walk.unknown_key(key, &["allow"], "[padding]"),
         }
     }
+}
+
+fn plot(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
+    let Some(table) = walk.table(value, "write `[plot]`, then `nets`, `from` or `to`") else { return };
+    let mut plot = NewPlot::default();
+    for (key, value) in table.iter() {
+        match key.get_ref().as_ref() {
+            "nets" => {
+                let mark = walk.mark(value.span());
+                plot.nets = walk.names(value).map(|names| Said::at(names, mark));
+            }
+            "from" => plot.from = walk.amount(value),
+            "to" => plot.to = walk.amount(value),
+            _ => walk.unknown_key(key, &["nets", "from", "to"], "[plot]"),
+        }
+    }
+    builder.plot(plot);
 }
 
 fn draw(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {

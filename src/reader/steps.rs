@@ -211,17 +211,6 @@ fn bounce(walk: &mut Walk, value: &Value<'_>) -> Option<NewBounce> {
     Some(NewBounce { lasting: lasting.flatten()?, pulses: pulses.flatten()? })
 }
 
-/// What takes the place of steps: a word, or (later) a table that names a file of changes.
-pub(super) fn stimulus(walk: &mut Walk, builder: &mut Builder, value: &Value<'_>) {
-    let mark = walk.mark(value.span());
-    if value.get_ref().is_table() {
-        let sentence = "`stimulus` as a table: not analysed yet; it has no effect".to_string();
-        builder.not_analysed(Said::at(sentence, mark));
-    } else if walk.word(value, &[("every single change", ())]).is_some() {
-        builder.every_single_change(mark);
-    }
-}
-
 /// Adds the steps that `stimulus` stands for.
 pub(super) fn lay_out(scenario: Scenario) -> Result<Scenario, Vec<Fault>> {
     let Steps::ToLayOut { mark, .. } = scenario.stimulus.walk else { return Ok(scenario) };

@@ -10,7 +10,8 @@ use crate::engine::Program;
 use crate::findings::Asked;
 use crate::scenario::Scenario;
 use crate::statics;
-use crate::sweep::{Cases, ConditionReport, Curve, Ranges, Stopped, SweepReport, Tally, looks, run_samples};
+use crate::sweep::{Cases, ConditionReport, Curve, Ranges, Stopped, SweepReport, Tally, looks};
+use crate::sweep::{run_samples, run_samples_with_envelope};
 
 /// Sweeps all samples of the plan on this many threads (0: all cores), draws the conclusions, and checks that every
 /// settled state is a stable state and, where its window began at rest, an outcome that the delay-free view allows; so
@@ -24,7 +25,7 @@ pub fn sweep(
     threads: usize,
     control: &Control,
 ) -> Result<SweepReport, ReviewError> {
-    let mut cases = Cases::new(scenario, asked);
+    let mut cases = Cases::with_envelope(scenario, asked);
     let sweeper = Sweeper::new(scenario, program, asked, threads)?;
     sweeper.run(&mut cases, 0..scenario.plan.samples, control);
     sweeper.conclude(&cases, None, control)
@@ -84,7 +85,11 @@ impl<'a> Sweeper<'a> {
             for gap in case.done.missing(range.clone()).iter() {
                 let control = shifted(control, before, missing);
                 before += gap.end - gap.start;
-                let tally = run_samples(scenario, program, self.asked, gap.clone(), self.threads, &control);
+                let run = match case.tally.envelope {
+                    None => run_samples,
+                    Some(_) => run_samples_with_envelope,
+                };
+                let tally = run(scenario, program, self.asked, gap.clone(), self.threads, &control);
                 case.done.add(&Ranges::of(gap.start..gap.start + tally.samples));
                 case.tally.merge(&tally);
                 if control.cancelled() {

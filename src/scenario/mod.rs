@@ -7,6 +7,7 @@ mod builder;
 mod condition;
 mod fault;
 mod padding;
+mod plot;
 mod rules;
 mod stimulus;
 
@@ -18,6 +19,7 @@ pub use builder::*;
 pub use condition::*;
 pub use fault::*;
 pub use padding::*;
+pub use plot::*;
 pub use rules::*;
 pub use stimulus::*;
 
@@ -58,6 +60,8 @@ pub struct Scenario {
     pub plan: Plan,
     /// Where delay may be added to cure what is refuted, in order; `None`: not said, see [`Scenario::paddable`].
     pub padding: Option<Vec<Padded>>,
+    /// What pictures of waves show, where the file says so.
+    pub plot: Plot,
     /// Conditions of temperature and supply, in the order of the file; each is swept as a case of its own.
     pub conditions: Vec<Condition>,
     /// What the user should know of the scenario as it was understood, in the order of the file.

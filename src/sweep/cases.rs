@@ -36,6 +36,13 @@ impl Cases {
         Cases(names(scenario).map(case).collect())
     }
 
+    /// Nothing done yet; between which times each edge comes is kept of the scenario's own delays.
+    pub fn with_envelope(scenario: &Scenario, asked: &Asked) -> Cases {
+        let mut cases = Cases::new(scenario, asked);
+        cases.0[0].tally = Tally::with_envelope(scenario, asked);
+        cases
+    }
+
     /// Adds the tallies of other samples of the same sweep.
     pub fn merge(&mut self, other: &Cases) {
         for (ours, theirs) in self.0.iter_mut().zip(&other.0) {

@@ -124,6 +124,7 @@ pub fn conclude_after(scenario: &Scenario, asked: &Asked, tally: &Tally, looks: 
         stopped: None,
         conditions: Vec::new(),
         ties: TiesSought::default(),
+        envelope: tally.envelope.clone().map(Box::new),
     }
 }
 

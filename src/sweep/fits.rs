@@ -35,6 +35,7 @@ impl Tally {
             (self.windows.len() == moments, "a wrong number of steps"),
             (self.rows.len() == questions, "a wrong number of questions"),
             (self.windows.iter().all(|it| shape.window(it)), "figures of a step that cannot be"),
+            (self.envelope.as_ref().is_none_or(|it| it.fits(scenario, &self.windows)), "times of edges that cannot be"),
             (self.rows.iter().all(|it| shape.row(it)), "answers to a question that cannot be"),
             (self.facts.keys().all(|it| known(it, scenario, asked)), "a finding about something that is not there"),
             (self.facts.values().all(|it| shape.fact(it)), "figures of a finding that cannot be"),

@@ -2,6 +2,7 @@
 
 mod cases;
 mod conclude;
+mod envelope;
 mod fits;
 mod looks;
 mod lowest;
@@ -20,6 +21,7 @@ mod waiting;
 
 pub use cases::{Case, Cases};
 pub use conclude::{conclude, conclude_after, race_breaks, worst_first};
+pub use envelope::{EdgeSpan, Envelope, MOST_EDGES};
 pub use looks::{Curve, Point, Until, UntilError, looks};
 pub use lowest::KEPT as FAILING;
 pub use part::{Foreign, Overrides, Part, Parts, Refusal};
@@ -29,7 +31,7 @@ pub use report::{
     AtMost, Boards, Cause, ConditionReport, Finding, Fork, Outcome, RuleReport, Settling, Stopped, SweepReport, Tie,
     TiesSought, Unmoved, WindowReport, Worst,
 };
-pub use run::run_samples;
+pub use run::{run_samples, run_samples_with_envelope};
 pub use stats::{clopper_pearson, none_in};
 pub use tally::{Passage, Tally};
 pub use unseen::{UnseenMass, unseen_mass};

@@ -88,6 +88,7 @@ impl Part {
     /// How its sweep differs from that of another part.
     fn differs(&self, other: &Part) -> Vec<&'static str> {
         let conditions = |part: &Part| part.cases.0.iter().map(|case| case.condition.clone()).collect::<Vec<_>>();
+        let envelopes = |part: &Part| part.cases.0.iter().map(|it| it.tally.envelope.is_some()).collect::<Vec<_>>();
         let (a, b) = (&self.plan, &other.plan);
         let different = [
             (self.text != other.text, "scenario text"),
@@ -98,6 +99,7 @@ impl Part {
             (a.tries != b.tries, "tries"),
             (a != b, "plan"),
             (conditions(self) != conditions(other), "conditions"),
+            (envelopes(self) != envelopes(other), "asking for times of edges"),
         ];
         let mut all: Vec<&str> = different.into_iter().filter(|(differs, _)| *differs).map(|(_, what)| what).collect();
         // of the plan only what the rows above do not say

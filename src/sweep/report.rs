@@ -10,6 +10,7 @@ use crate::scenario::{Condition, Plan};
 use crate::time::Span;
 
 use super::conclude::confidence;
+use super::envelope::Envelope;
 use super::looks::{Curve, Point, widest};
 use super::ranges::Ranges;
 use super::stats::clopper_pearson;
@@ -47,6 +48,8 @@ pub struct SweepReport {
     pub conditions: Vec<ConditionReport>,
     /// How far exactly equal times were looked for.
     pub ties: TiesSought,
+    /// Between which times each edge came; `None` if that was not asked for, and within a condition.
+    pub envelope: Option<Box<Envelope>>,
 }
 
 /// How far exactly equal times were looked for: of which cases and findings it is not known what they have to do with a

@@ -3,9 +3,10 @@
 use std::sync::Mutex;
 use std::sync::atomic::{AtomicU64, Ordering};
 
+use super::envelope::Edges;
 use super::tally::Tally;
 use crate::control::Control;
-use crate::engine::Program;
+use crate::engine::{Observer, Program};
 use crate::findings::{Asked, Judge};
 use crate::instance::{Instance, Sampler, Which};
 use crate::scenario::Scenario;
@@ -25,6 +26,65 @@ pub fn run_samples(
     threads: usize,
     control: &Control,
 ) -> Tally {
+    run_heard(scenario, program, (Tally::new(scenario, asked), samples), threads, control, || {
+        Judge::new(scenario, asked, Tally::new(scenario, asked))
+    })
+}
+
+/// As [`run_samples`]; the tally also has between which times each edge came.
+pub fn run_samples_with_envelope(
+    scenario: &Scenario,
+    program: &Program,
+    asked: &Asked,
+    samples: std::ops::Range<u64>,
+    threads: usize,
+    control: &Control,
+) -> Tally {
+    run_heard(scenario, program, (Tally::with_envelope(scenario, asked), samples), threads, control, || {
+        (Judge::new(scenario, asked, Tally::new(scenario, asked)), Edges::new(scenario))
+    })
+}
+
+/// Who hears the runs of one worker.
+trait Hearer: Observer<Tag = ()> {
+    fn tally(&mut self) -> &mut Tally;
+    /// All runs are over.
+    fn finish(self) -> Tally;
+}
+
+impl Hearer for Judge<Tally> {
+    #[inline]
+    fn tally(&mut self) -> &mut Tally {
+        &mut self.sink
+    }
+
+    fn finish(mut self) -> Tally {
+        self.sink.finish();
+        self.sink
+    }
+}
+
+impl Hearer for (Judge<Tally>, Edges) {
+    #[inline]
+    fn tally(&mut self) -> &mut Tally {
+        self.0.tally()
+    }
+
+    fn finish(self) -> Tally {
+        let mut tally = self.0.finish();
+        tally.envelope = Some(self.1.envelope);
+        tally
+    }
+}
+
+fn run_heard<H: Hearer>(
+    scenario: &Scenario,
+    program: &Program,
+    (empty, samples): (Tally, std::ops::Range<u64>),
+    threads: usize,
+    control: &Control,
+    hearer: impl Fn() -> H + Sync,
+) -> Tally {
     let tries = scenario.plan.tries.max(1);
     let chunk = CHUNK.div_ceil(tries) * tries;
     let threads = match threads {
@@ -35,12 +95,12 @@ pub fn run_samples(
     let next = AtomicU64::new(samples.start);
     let done = AtomicU64::new(0);
     let total = samples.end - samples.start;
-    let whole = Mutex::new(Tally::new(scenario, asked));
+    let whole = Mutex::new(empty);
     let work = || {
         let mut machine = program.machine::<()>();
         let mut sampler = Sampler::new(scenario);
         let mut instance = Instance::of(scenario, &Which::Typ);
-        let mut judge = Judge::new(scenario, asked, Tally::new(scenario, asked));
+        let mut hearer = hearer();
         // a sample is all or nothing: the caller's control stops between chunks
         let whole_sample = Control::default();
         loop {
@@ -55,13 +115,13 @@ pub fn run_samples(
             let to = (from + chunk).min(samples.end);
             for sample in from..to {
                 sampler.fill(sample, &mut instance);
-                judge.sink.begin(sample);
-                machine.run(&instance, &whole_sample, &mut judge);
+                hearer.tally().begin(sample);
+                machine.run(&instance, &whole_sample, &mut hearer);
             }
             control.report(done.fetch_add(to - from, Ordering::Relaxed) + (to - from), total);
         }
-        judge.sink.finish();
-        whole.lock().unwrap_or_else(std::sync::PoisonError::into_inner).absorb(judge.sink);
+        let tally = hearer.finish();
+        whole.lock().unwrap_or_else(std::sync::PoisonError::into_inner).absorb(tally);
     };
     if threads == 1 {
         work();

@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
+use super::envelope::Envelope;
 use super::lowest::Lowest;
 use super::seen::{Key, Seen, mix};
 use super::spread::Spread;
@@ -161,6 +162,8 @@ pub struct Tally {
     pub facts: BTreeMap<Subject, FactTally>,
     /// Complete boards in it, with several tries a board.
     pub boards: u64,
+    /// Between which times each edge came; `None` if that was not asked for.
+    pub envelope: Option<Envelope>,
     pub(super) planned: u64,
     pub(super) tries: u64,
     #[serde(with = "super::pairs")]
@@ -292,6 +295,7 @@ impl Tally {
             rows: vec![RowTally::default(); asked.questions.len()],
             facts: BTreeMap::new(),
             boards: 0,
+            envelope: None,
             planned: scenario.plan.samples,
             tries: scenario.plan.tries,
             part_boards: BTreeMap::new(),
@@ -300,6 +304,11 @@ impl Tally {
             board: None,
             waiting: Waiting::new(scenario.circuit.net_count(), scenario.stimulus.moments.len(), asked.questions.len()),
         }
+    }
+
+    /// The same, which also keeps between which times each edge came.
+    pub fn with_envelope(scenario: &Scenario, asked: &Asked) -> Tally {
+        Tally { envelope: Some(Envelope::new(scenario)), ..Tally::new(scenario, asked) }
     }
 
     /// The next answers are those of this sample. Samples of one tally come in rising order.
@@ -393,8 +402,13 @@ impl Tally {
         }
     }
 
-    /// Adds the finished tally of other samples of the same sweep.
+    /// Adds the finished tally of other samples of the same sweep. Where one of the two has no envelope there is none: it
+    /// would be one of some samples only.
     pub fn merge(&mut self, other: &Tally) {
+        match (&mut self.envelope, &other.envelope) {
+            (Some(ours), Some(theirs)) => ours.merge(theirs),
+            _ => self.envelope = None,
+        }
         self.samples += other.samples;
         self.failing += other.failing;
         for (ours, theirs) in self.windows.iter_mut().zip(&other.windows) {

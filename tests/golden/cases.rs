@@ -139,6 +139,7 @@ impl Case {
             limits: Limits::default(),
             plan: Plan::default(),
             padding: None,
+            plot: Default::default(),
             conditions: Vec::new(),
             notes: Vec::new(),
             not_analysed: Vec::new(),

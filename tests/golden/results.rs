@@ -172,6 +172,7 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
         stopped: None,
         conditions: Vec::new(),
         ties: TiesSought { done: true, ..TiesSought::default() },
+        envelope: None,
     }
 }
 
@@ -344,5 +345,6 @@ pub fn sweep_of_nothing(scenario: &Scenario) -> SweepReport {
         stopped: None,
         conditions: Vec::new(),
         ties: TiesSought::default(),
+        envelope: None,
     }
 }

@@ -102,7 +102,7 @@ impl Read {
 
     /// Samples `from .. to` as a part.
     fn part(&self, from: u64, to: u64) -> Part {
-        let mut cases = Cases::new(&self.scenario, &self.asked);
+        let mut cases = Cases::with_envelope(&self.scenario, &self.asked);
         let sweeper = Sweeper::new(&self.scenario, &self.program, &self.asked, 1).unwrap();
         sweeper.run(&mut cases, from..to, &Control::default());
         Part {

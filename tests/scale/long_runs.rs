@@ -51,7 +51,7 @@ fn a_run_beyond_what_is_kept_is_on_the_disk_whole() {
     assert_eq!(document["windows"][0]["limit"], "limits.transitions", "how it ended is known all the same");
     assert_eq!(
         names(&folder.path().join("out")),
-        ["case-sample-3.toml", "changes-sample-3.csv", "run-sample-3.json", "waves-sample-3.svg"]
+        ["case-sample-3.toml", "changes-sample-3.csv", "run-sample-3.json", "waves-sample-3.svg", "waves-sample-3.vcd"]
     );
     let svg = std::fs::read_to_string(folder.path().join("out/waves-sample-3.svg")).unwrap();
     assert!(svg.contains("A part of the run") && svg.contains("came after what was kept"), "the picture says so");
@@ -83,12 +83,48 @@ fn a_run_beyond_what_is_kept_is_on_the_disk_whole() {
     assert!(begun.iter().all(|(net, rows)| listed(net) == *rows), "whole up to {until}");
     assert!(begun.values().sum::<usize>() > 100_000);
 
+    // the dump has the same transitions, told by an independent reader
+    let dump = std::fs::File::open(folder.path().join("out/waves-sample-3.vcd")).unwrap();
+    let mut parser = vcd::Parser::new(std::io::BufReader::new(dump));
+    let header = parser.parse_header().unwrap();
+    assert_eq!(header.timescale.map(|(number, unit)| u64::from(number) * 10u64.pow(15) / unit.divisor()), Some(1));
+    let mut all = csv::Reader::from_path(folder.path().join("out/changes-sample-3.csv")).unwrap();
+    let mut rows = all.records().map(Result::unwrap);
+    let ids: HashMap<_, _> = header
+        .items
+        .iter()
+        .flat_map(|item| match item {
+            vcd::ScopeItem::Scope(scope) => scope
+                .items
+                .iter()
+                .filter_map(|item| match item {
+                    vcd::ScopeItem::Var(var) => Some((var.code, var.reference.clone())),
+                    _ => None,
+                })
+                .collect::<Vec<_>>(),
+            _ => vec![],
+        })
+        .collect();
+    let mut now = 0;
+    for command in parser {
+        match command.unwrap() {
+            vcd::Command::Timestamp(at) => now = at,
+            vcd::Command::ChangeScalar(id, value) => {
+                let row = rows.next().expect("a row for every change");
+                let at = stillgate::time::Span::parse(&row[0], stillgate::time::Unit::Ns).unwrap().fs();
+                assert_eq!((at, &row[1], &row[2]), (now, ids[&id].as_str(), value.to_string().as_str()));
+            }
+            _ => {}
+        }
+    }
+    assert!(rows.next().is_none());
+
     // a shorter run in the same folder has no table of changes of another run beside it
     std::fs::write(folder.path().join("long.toml"), rings(4, 5_000)).unwrap();
     assert!(stillgate(folder.path(), &case).status.success());
     assert_eq!(
         names(&folder.path().join("out")),
-        ["case-sample-3.toml", "run-sample-3.json", "waves-sample-3.csv", "waves-sample-3.svg"]
+        ["case-sample-3.toml", "run-sample-3.json", "waves-sample-3.csv", "waves-sample-3.svg", "waves-sample-3.vcd"]
     );
 }
 

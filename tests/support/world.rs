@@ -196,6 +196,7 @@ impl World {
             limits: self.limits,
             plan: self.plan,
             padding: None,
+            plot: Default::default(),
             conditions: Vec::new(),
             notes: Vec::new(),
             not_analysed: Vec::new(),

@@ -1,7 +1,7 @@
 //! Findings of a sweep, worst first.
 
 use super::Page;
-use super::paper::{Paper, Tone};
+use super::paper::{Paper, Tone, WIDEST};
 use super::search::Searching;
 use super::why::{Causes, Told};
 use crate::findings::{Against, Asked, Kind, RacePair, RuleKey, Subject};
@@ -172,13 +172,7 @@ impl Group<'_> {
 }
 
 /// The two paths that race, one line each; a pair that was told before is told by the number of its finding.
-fn race<'a>(
-    paper: &mut Paper,
-    page: &Page<'_>,
-    scenario: &Scenario,
-    why: Option<&'a Why>,
-    told: &mut Vec<Option<&'a RacePair>>,
-) {
+fn race<'a>(paper: &mut Paper, scenario: &Scenario, why: Option<&'a Why>, told: &mut Vec<Option<&'a RacePair>>) {
     let pair = why.and_then(|why| why.race.as_ref());
     let before = told.iter().position(|it| pair.is_some() && *it == pair);
     told.push(pair);
@@ -186,7 +180,8 @@ fn race<'a>(
     if let Some(before) = before {
         return paper.say(4, Tone::Plain, &format!("The paths that race are those of {}.", before + 1));
     }
-    let width = if told.len() == 1 { LINES * (page.columns() - 8) } else { page.columns() - 4 };
+    // the same legs are told however wide the terminal is
+    let width = if told.len() == 1 { LINES * (WIDEST - 8) } else { WIDEST - 4 };
     for line in races::lines(scenario, pair, width) {
         paper.hang(4, 6, Tone::Plain, &line);
     }
@@ -222,7 +217,7 @@ pub(super) fn findings(
                 paper.say(4, Tone::Plain, &format!("{first}{}", departure(scenario, against)));
             }
             if i < TOLD {
-                race(paper, page, scenario, of(finding), &mut told);
+                race(paper, scenario, of(finding), &mut told);
             }
             if let Some((race, replay)) = causes.as_ref().and_then(|causes| causes.rare(page, scenario, finding)) {
                 race.iter().for_each(|race| paper.hang(4, 6, Tone::Plain, race));
@@ -268,7 +263,7 @@ pub(super) fn findings(
         for (i, group) in listed.iter().take(most).enumerate() {
             paper.item(Tone::Plain, &format!("{}: {}", group.about(scenario, asked), group.figures(scenario)));
             if i == 0 && broken.len() <= FEW {
-                race(paper, page, scenario, of(group.worst), &mut Vec::new());
+                race(paper, scenario, of(group.worst), &mut Vec::new());
             }
         }
         super::more(paper, listed.len().saturating_sub(most), "findings.csv");

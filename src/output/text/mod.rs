@@ -64,11 +64,6 @@ impl Page<'_> {
         paper::Paper::new(self.style, self.width)
     }
 
-    /// Columns that a text takes.
-    fn columns(&self) -> usize {
-        paper::columns(self.width)
-    }
-
     /// The command that replays a case, under a condition if one is named.
     fn replay(&self, case: &Which, condition: Option<&str>) -> String {
         let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));

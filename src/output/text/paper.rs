@@ -37,20 +37,17 @@ impl Tone {
 }
 
 /// Widest and narrowest page, in columns.
-const WIDTHS: (usize, usize) = (60, 100);
+const WIDTHS: (usize, usize) = (60, WIDEST);
+/// The widest page.
+pub(super) const WIDEST: usize = 100;
 /// Before every line of a table.
 const INDENT: usize = 2;
 /// Between two columns of a table.
 const GAP: usize = 2;
-/// A column that may be cut is cut to this before others are dropped.
+/// A column of texts becomes as narrow as this before others go below their rows.
 const FIRST_CUT: usize = 18;
-/// And to this once nothing can be dropped.
+/// And as this once no other can.
 const LAST_CUT: usize = 6;
-
-/// The columns that a text takes of this many.
-pub(super) fn columns(width: usize) -> usize {
-    width.clamp(WIDTHS.0, WIDTHS.1)
-}
 
 /// A page that is being written.
 pub(super) struct Paper {
@@ -61,7 +58,7 @@ pub(super) struct Paper {
 
 impl Paper {
     pub fn new(style: Style, width: usize) -> Paper {
-        Paper { style, width: columns(width), text: String::new() }
+        Paper { style, width: width.clamp(WIDTHS.0, WIDTHS.1), text: String::new() }
     }
 
     pub fn finish(self) -> String {
@@ -129,27 +126,39 @@ impl Paper {
         self.put(Tone::Plain, &format!("{}{text}", " ".repeat(indent)));
     }
 
-    /// A table, indented by two.
+    /// A table, indented by two. Where there is no room a cell goes on below itself, and a column that would leave too little
+    /// for the others goes below its row, with its title.
     pub fn table(&mut self, table: &Table) {
-        let indent = INDENT;
-        let (columns, widths) = table.fit(self.width - indent);
-        let row = |cells: &dyn Fn(usize) -> String| {
-            let mut line = " ".repeat(indent);
-            for (k, (column, width)) in columns.iter().zip(&widths).enumerate() {
-                let cell = cut(&cells(*column), *width);
-                let pad = " ".repeat(width - cell.chars().count());
-                let gap = if k > 0 { " ".repeat(GAP) } else { String::new() };
-                line += &gap;
-                line += &if table.columns[*column].right { pad + &cell } else { cell + &pad };
-            }
-            line.truncate(line.trim_end().len());
-            line
-        };
-        let head = row(&|column| table.columns[column].title.clone());
-        self.put(Tone::Quiet, &head);
+        let (columns, widths) = table.fit(self.width - INDENT);
+        let below: Vec<usize> = (0..table.columns.len()).filter(|column| !columns.contains(column)).collect();
+        let titles: Vec<&str> = table.columns.iter().map(|column| column.title.as_str()).collect();
+        self.row(table, Tone::Quiet, &titles, (&columns, &widths));
         for (tone, cells) in &table.rows {
-            let line = row(&|column| cells[column].clone());
-            self.put(*tone, &line);
+            let cells: Vec<&str> = cells.iter().map(String::as_str).collect();
+            self.row(table, *tone, &cells, (&columns, &widths));
+            let more = below.iter().filter(|column| !cells[**column].trim().is_empty());
+            let more: Vec<String> = more.map(|column| format!("{} {}", titles[*column], cells[*column])).collect();
+            if !more.is_empty() {
+                self.hang(2 * INDENT, 2 * INDENT, *tone, &more.join(", "));
+            }
+        }
+    }
+
+    /// One row, on as many lines as its highest cell takes.
+    fn row(&mut self, table: &Table, tone: Tone, cells: &[&str], (columns, widths): (&[usize], &[usize])) {
+        let cells: Vec<Vec<String>> =
+            columns.iter().zip(widths).map(|(column, width)| within(cells[*column], *width)).collect();
+        for i in 0..cells.iter().map(Vec::len).max().unwrap_or(0) {
+            let mut line = " ".repeat(INDENT);
+            for (k, (column, width)) in columns.iter().zip(widths).enumerate() {
+                let cell = cells[k].get(i).map_or("", String::as_str);
+                let pad = " ".repeat(width.saturating_sub(cell.chars().count()));
+                if k > 0 {
+                    line += &" ".repeat(GAP);
+                }
+                line += &if table.columns[*column].right { pad + cell } else { cell.to_string() + &pad };
+            }
+            self.put(tone, line.trim_end());
         }
     }
 
@@ -188,22 +197,56 @@ fn shown(letter: char) -> char {
     if letter.is_control() { '\u{fffd}' } else { letter }
 }
 
-/// No more than `width` letters, the last an ellipsis if some were cut.
-fn cut(text: &str, width: usize) -> String {
+/// Most lines of one cell; of a longer one the end is left out.
+const MOST_LINES: usize = 6;
+
+/// A text in lines of at most `width` letters, at least one: broken at spaces, and within words that are longer.
+fn within(text: &str, width: usize) -> Vec<String> {
+    let width = width.max(1);
     let text: String = text.chars().map(|letter| if letter == '\n' { ' ' } else { shown(letter) }).collect();
     if text.chars().count() <= width {
-        return text;
+        return vec![text];
     }
-    let kept: String = text.chars().take(width.saturating_sub(1)).collect();
-    format!("{}…", kept.trim_end())
+    let mut lines = vec![String::new()];
+    let mut used = 0;
+    for word in text.split_whitespace() {
+        let mut rest: Vec<char> = word.chars().collect();
+        if used > 0 && used + 1 + rest.len() > width {
+            lines.push(String::new());
+            used = 0;
+        }
+        while rest.len() > width {
+            let tail = rest.split_off(width);
+            if let Some(line) = lines.last_mut() {
+                line.extend(&rest);
+            }
+            lines.push(String::new());
+            rest = tail;
+        }
+        if let Some(line) = lines.last_mut() {
+            if used > 0 {
+                line.push(' ');
+                used += 1;
+            }
+            line.extend(&rest);
+            used += rest.len();
+        }
+    }
+    if lines.len() > MOST_LINES {
+        lines.truncate(MOST_LINES);
+        if let Some(last) = lines.last_mut() {
+            *last = last.chars().take(width - 1).chain(['…']).collect();
+        }
+    }
+    lines
 }
 
 /// One column of a table.
 pub(super) struct Column {
     title: String,
     right: bool,
-    may_cut: bool,
-    /// Columns with a greater number go first where there is no room; 0 stays.
+    may_wrap: bool,
+    /// Columns with a greater number go below their row first where there is no room; 0 stays.
     drop: u8,
 }
 
@@ -218,21 +261,21 @@ impl Table {
         Table { columns: Vec::new(), rows: Vec::new() }
     }
 
-    /// A column of texts that may be cut.
+    /// A column of texts that may take several lines.
     pub fn text(mut self, title: impl Into<String>) -> Table {
-        self.columns.push(Column { title: title.into(), right: false, may_cut: true, drop: 0 });
+        self.columns.push(Column { title: title.into(), right: false, may_wrap: true, drop: 0 });
         self
     }
 
-    /// A column of numbers, aligned right; it is left out where there is no room if `drop` is above 0.
+    /// A column of numbers, aligned right; it goes below its row where there is no room if `drop` is above 0.
     pub fn number(mut self, title: impl Into<String>, drop: u8) -> Table {
-        self.columns.push(Column { title: title.into(), right: true, may_cut: false, drop });
+        self.columns.push(Column { title: title.into(), right: true, may_wrap: false, drop });
         self
     }
 
     /// A column of short words.
     pub fn word(mut self, title: impl Into<String>) -> Table {
-        self.columns.push(Column { title: title.into(), right: false, may_cut: false, drop: 0 });
+        self.columns.push(Column { title: title.into(), right: false, may_wrap: false, drop: 0 });
         self
     }
 
@@ -241,7 +284,7 @@ impl Table {
         self.rows.push((tone, cells));
     }
 
-    /// Does all of it fit a page, with nothing cut or left out?
+    /// Does all of it fit a page, in one line a row?
     pub fn fits(&self, paper: &Paper) -> bool {
         let room = paper.width - INDENT;
         let whole: usize = self.natural().iter().sum::<usize>() + GAP * self.columns.len().saturating_sub(1);
@@ -257,7 +300,7 @@ impl Table {
         self.columns.iter().enumerate().map(width).collect()
     }
 
-    /// Which columns are shown, and how wide.
+    /// Which columns stand beside each other, and how wide.
     fn fit(&self, room: usize) -> (Vec<usize>, Vec<usize>) {
         let natural = self.natural();
         let mut shown: Vec<usize> = (0..self.columns.len()).collect();
@@ -268,8 +311,8 @@ impl Table {
             let next = droppable.max_by_key(|c| self.columns[*c].drop);
             let least = if next.is_some() { FIRST_CUT } else { LAST_CUT };
             while total(&widths) > room {
-                let may_cut = (0..shown.len()).filter(|k| self.columns[shown[*k]].may_cut && widths[*k] > least);
-                let Some(widest) = may_cut.max_by_key(|k| widths[*k]) else { break };
+                let may_wrap = (0..shown.len()).filter(|k| self.columns[shown[*k]].may_wrap && widths[*k] > least);
+                let Some(widest) = may_wrap.max_by_key(|k| widths[*k]) else { break };
                 widths[widest] -= 1;
             }
             match next {
@@ -298,14 +341,42 @@ mod tests {
     }
 
     #[test]
-    fn a_table_drops_columns_before_it_cuts_names_to_nothing() {
+    fn a_table_without_room_takes_more_lines_and_loses_nothing() {
         let mut table = Table::new().text("step").number("median", 2).number("longest", 0);
-        table.row(Tone::Plain, vec!["s".repeat(70), "1 ns".into(), "2 ns".into()]);
+        let name = "both_let_go ".repeat(7);
+        table.row(Tone::Plain, vec![name.clone(), "1 ns".into(), "2 ns".into()]);
+        table.row(Tone::Plain, vec!["s".repeat(90), "3 ns".into(), "4 ns".into()]);
         let mut page = paper(60);
         page.table(&table);
         let text = page.finish();
         assert!(text.lines().all(|line| line.chars().count() <= 60), "{text}");
-        assert!(text.contains("median") && text.contains("2 ns") && text.contains('…'), "{text}");
+        assert_eq!(text.matches("both_let_go").count(), 7, "{text}");
+        assert_eq!(text.matches('s').count(), 90 + "step longest 2 ns 1 ns 3 ns 4 ns".matches('s').count(), "{text}");
+        assert!(text.contains("median") && text.contains("2 ns") && !text.contains('…'), "{text}");
+    }
+
+    #[test]
+    fn columns_without_room_go_below_their_rows() {
+        let mut table = Table::new().text("step");
+        for column in 0..8 {
+            table = table.number(format!("column {column}"), column);
+        }
+        table.row(Tone::Plain, [vec!["a step".to_string()], vec!["12.5 ns".to_string(); 8]].concat());
+        let mut page = paper(60);
+        page.table(&table);
+        let text = page.finish();
+        assert!(text.lines().all(|line| line.chars().count() <= 60), "{text}");
+        assert!((0..8).all(|column| text.contains(&format!("column {column}"))), "{text}");
+        assert_eq!(text.matches("12.5 ns").count(), 8, "{text}");
+    }
+
+    #[test]
+    fn a_cell_is_broken_at_spaces_and_ends_somewhere() {
+        assert_eq!(within("let go, then call", 8), ["let go,", "then", "call"]);
+        assert_eq!(within("abcdefghij kl", 4), ["abcd", "efgh", "ij", "kl"]);
+        assert_eq!(within("", 4), [""]);
+        let long = within(&"x".repeat(1000), 10);
+        assert!(long.len() == MOST_LINES && long[MOST_LINES - 1].ends_with('…'), "{long:?}");
     }
 
     #[test]

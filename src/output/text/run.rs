@@ -2,7 +2,7 @@
 
 use super::Page;
 use super::findings::{about, departure, worst};
-use super::paper::{Paper, Table, Tone};
+use super::paper::{Paper, Table, Tone, WIDEST};
 use super::{notes, rules, steps};
 use crate::engine::{End, Window};
 use crate::findings::{Asked, Fact};
@@ -55,7 +55,7 @@ pub fn run(scenario: &Scenario, asked: &Asked, report: &RunReport, page: &Page<'
             let (tone, words) = told(scenario, asked, report, fact);
             paper.item(tone, &words);
             if let Some(pair) = report.race(scenario, asked, fact) {
-                for line in races::lines(scenario, &pair, 2 * (page.columns() - 8)) {
+                for line in races::lines(scenario, &pair, 2 * (WIDEST - 8)) {
                     paper.hang(4, 6, Tone::Plain, &line);
                 }
             }

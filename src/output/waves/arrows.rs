@@ -14,6 +14,8 @@ use crate::time::Time;
 
 /// How far path B lies below A, so that what both have in common shows both.
 const APART: f64 = 3.0;
+/// Most arrows of a path: of a longer one, as through an oscillation, its end is drawn.
+pub(super) const MOST: usize = 24;
 /// Length and half width of an arrow's head.
 const HEAD: (f64, f64) = (6.0, 2.4);
 
@@ -25,6 +27,8 @@ pub(super) struct Chain {
     pub title: String,
     /// From edge to edge.
     pub arrows: Vec<Arrow>,
+    /// Is there more of it before?
+    pub goes_back: bool,
 }
 
 /// From one edge to the next.
@@ -43,7 +47,12 @@ pub(super) fn chains(picture: &Picture<'_>, lanes: &[Lane], axis: &Axis, range: 
     let paths = std::iter::once(("A", 0.0, &pair.first)).chain(pair.second.as_ref().map(|it| ("B", APART, it)));
     paths
         .zip(titles)
-        .map(|((letter, down, path), title)| Chain { letter, title, arrows: arrows(path, lanes, axis, range, down) })
+        .map(|((letter, down, path), title)| {
+            let mut arrows = arrows(path, lanes, axis, range, down);
+            let earlier = arrows.len().saturating_sub(MOST);
+            arrows.drain(..earlier);
+            Chain { letter, title, arrows, goes_back: earlier > 0 }
+        })
         .collect()
 }
 

@@ -43,14 +43,16 @@ pub(super) struct Axis {
 }
 
 impl Axis {
-    /// An axis from `from` to `to` between two pixels; `busy` are the instants, in order, at which something happens.
-    pub fn new(range: (Time, Time), busy: &[Time], left: f64, right: f64, unit: Unit) -> Axis {
+    /// An axis from `from` to `to` between two pixels; `busy` are the instants, in order, at which something happens; nothing
+    /// is cut out of the stretches `whole`, which begin and end at such instants, in order and apart from each other.
+    pub fn new(range: (Time, Time), busy: &[Time], whole: &[(Time, Time)], ends: (f64, f64), unit: Unit) -> Axis {
+        let (left, right) = ends;
         let (from, to) = (range.0.fs(), range.1.fs().max(range.0.fs() + 1));
         let mut points = vec![from];
         points.extend(busy.iter().map(|at| at.fs()).filter(|at| from < *at && *at < to));
         points.push(to);
         points.dedup();
-        let cuts = quiet(&points, right - left);
+        let cuts = quiet(&points, whole, right - left);
         let gap = if cuts.is_empty() { 0.0 } else { (360.0 / cuts.len() as f64).clamp(9.0, 26.0) };
         let shown = (to - from - cuts.iter().map(|cut| cut.1 - cut.0).sum::<u64>()) as f64;
         let scale = (right - left - gap * cuts.len() as f64) / shown;
@@ -132,9 +134,14 @@ impl Axis {
 ///
 /// In each round the longest stretches left (those not much shorter than the longest) are cut if together they are a good
 /// part of the picture and everything between them would be crammed without that.
-fn quiet(points: &[u64], pixels: f64) -> Vec<(u64, u64)> {
+fn quiet(points: &[u64], whole: &[(Time, Time)], pixels: f64) -> Vec<(u64, u64)> {
     let (first, last) = (points[0], points[points.len() - 1]);
-    let mut gaps: Vec<(u64, u64)> = points.windows(2).map(|pair| (pair[0], pair[1])).collect();
+    let is_whole = |gap: &(u64, u64)| {
+        let behind = whole.partition_point(|stretch| stretch.1.fs() <= gap.0);
+        whole.get(behind).is_some_and(|stretch| stretch.0.fs() < gap.1)
+    };
+    let mut gaps: Vec<(u64, u64)> =
+        points.windows(2).map(|pair| (pair[0], pair[1])).filter(|gap| !is_whole(gap)).collect();
     let length = |gap: &(u64, u64)| gap.1 - gap.0;
     gaps.sort_by_key(|gap| (std::cmp::Reverse(length(gap)), gap.0));
     let mut left = last - first;
@@ -144,7 +151,7 @@ fn quiet(points: &[u64], pixels: f64) -> Vec<(u64, u64)> {
         let next = many + gaps[many..].iter().take_while(alike).count();
         let sum: u64 = gaps[many..next].iter().map(length).sum();
         let crammed = longest_activity(first, last, &gaps[..next]) as f64 / left as f64 * pixels < CRAMMED;
-        if next > MOST_CUTS || next == gaps.len() || (sum as f64) < 0.4 * left as f64 || !crammed {
+        if next > MOST_CUTS || next == points.len() - 1 || (sum as f64) < 0.4 * left as f64 || !crammed {
             break;
         }
         (many, left) = (next, left - sum);
@@ -206,7 +213,7 @@ mod tests {
     }
 
     fn axis(to: u64, busy: &[u64]) -> Axis {
-        Axis::new((Time::ZERO, ns(&[to])[0]), &ns(busy), 100.0, 900.0, Unit::Ns)
+        Axis::new((Time::ZERO, ns(&[to])[0]), &ns(busy), &[], (100.0, 900.0), Unit::Ns)
     }
 
     #[test]
@@ -227,6 +234,18 @@ mod tests {
         assert!(axis.x(ns(&[10_001])[0]) > axis.x(ns(&[3])[0]));
         let labels: Vec<String> = axis.ticks().into_iter().filter_map(|tick| tick.label).collect();
         assert!(labels.iter().any(|label| label == "5") && labels.iter().any(|label| label.starts_with("1000")));
+    }
+
+    #[test]
+    fn a_stretch_in_which_something_may_happen_is_never_cut() {
+        let busy = ns(&[1, 2, 3, 5_000, 9_000, 10_001, 10_002, 10_004]);
+        let whole = [(busy[3], busy[4])];
+        let end = ns(&[10_010])[0];
+        let cut = |whole: &[(Time, Time)]| -> Vec<Cut> {
+            Axis::new((Time::ZERO, end), &busy, whole, (100.0, 900.0), Unit::Ns).cuts().collect()
+        };
+        assert!(cut(&[]).iter().any(|it| busy[3] < it.from && it.to < busy[4]), "it is cut without that");
+        assert!(cut(&whole).iter().all(|it| it.to <= busy[3] || busy[4] <= it.from), "{:?}", cut(&whole));
     }
 
     #[test]
@@ -263,7 +282,7 @@ mod tests {
     #[test]
     fn the_longest_run_has_an_axis() {
         let end = Time::from_fs((1 << 63) - 1);
-        let axis = Axis::new((Time::ZERO, end), &[Time::from_fs(1 << 62)], 0.0, 800.0, Unit::Fs);
+        let axis = Axis::new((Time::ZERO, end), &[Time::from_fs(1 << 62)], &[], (0.0, 800.0), Unit::Fs);
         assert!((5..=10).contains(&axis.ticks().len()));
         assert_eq!(axis.unit, Unit::S);
     }

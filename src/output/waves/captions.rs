@@ -1,9 +1,10 @@
 //! What a sheet says beside the drawing: title, description, notes, key of steps.
 
-use super::Picture;
 use super::axis::Axis;
+use super::behind::Behind;
 use super::frame::{Lane, MARGIN, WIDTH};
 use super::marks::{Spot, Step};
+use super::{Nets, Picture};
 use crate::circuit::NetId;
 use crate::output::ink::SMALL;
 use crate::output::measure::cut_end;
@@ -28,6 +29,12 @@ pub(super) struct Seen<'a> {
     pub missing: bool,
     pub steps: &'a [Step],
     pub spots: &'a [Spot],
+    /// Findings that lie outside the time that is drawn.
+    pub outside: usize,
+    /// What is drawn, if it is not all; and the end of all.
+    pub part: Option<(Time, Time)>,
+    pub end: Time,
+    pub behind: &'a Behind<'a>,
     pub axis: &'a Axis,
 }
 
@@ -45,10 +52,27 @@ pub(super) fn notes(picture: &Picture<'_>, seen: &Seen<'_>) -> Vec<String> {
         let (first, last) = (words::net(scenario, *first), words::net(scenario, *last));
         notes.push(format!("Sheet {} of {many}: {first} to {last}.", number + 1));
     }
-    if let Some((from, to)) = picture.part() {
+    if let Some((from, to)) = seen.part {
         let time = |at: Time| at.from_start().decimal(scenario.unit);
-        let (from, to, all) = (time(from), time(to), time(picture.end()));
+        let (from, to, all) = (time(from), time(to), time(seen.end));
         notes.push(format!("A part of the run: from {from} to {to} of {all} {}.", scenario.unit));
+    }
+    if picture.range.is_some_and(|(from, _)| from >= seen.end) {
+        notes.push("The run ends before this span of time: nothing happens in it.".to_string());
+    }
+    if seen.outside > 0 {
+        let findings = words::many(seen.outside as u64, "finding");
+        notes.push(format!("Not drawn: {findings} of this run outside this span of time."));
+    }
+    if let (Nets::These(chosen), Some(run)) = (&picture.nets, picture.front()) {
+        let mut hidden: Vec<_> = run.facts.iter().filter_map(|fact| fact.subject.net).collect();
+        hidden.retain(|net| !chosen.contains(net));
+        hidden.sort_unstable();
+        hidden.dedup();
+        if !hidden.is_empty() {
+            let names = words::some_names(&words::nets(scenario, &hidden), NAMED);
+            notes.push(format!("Not drawn: findings at {names}, which are not among the nets chosen."));
+        }
     }
     let later: u64 = picture.runs().filter_map(|run| run.trace.cut).map(|cut| cut.transitions).sum();
     if later > 0 {
@@ -72,9 +96,10 @@ pub(super) fn notes(picture: &Picture<'_>, seen: &Seen<'_>) -> Vec<String> {
     if seen.spots.iter().any(|spot| !spot.breaks_rule) {
         notes.push("Dashed brackets: listed, breaks no rule.".to_string());
     }
-    if picture.layers.len() > 1 {
-        notes.push("Dashed waves: further runs.".to_string());
+    if picture.runs().count() > 1 {
+        notes.push("Thin dashed lines: further runs, at their own times.".to_string());
     }
+    notes.extend(seen.behind.notes().cloned());
     if seen.missing {
         notes.push("Marks without a label had no room for it; tooltips and tables have the text.".to_string());
     }
@@ -108,15 +133,23 @@ pub(super) fn key(picture: &Picture<'_>, steps: &[Step]) -> Vec<String> {
 
 /// Scenario, which delays, and which sheet.
 pub(super) fn title(picture: &Picture<'_>, sheet: (usize, usize)) -> String {
-    let runs: Vec<String> = picture.runs().map(|run| words::delays(&run.which)).collect();
+    let mut runs: Vec<String> = picture.runs().map(|run| words::delays(&run.which)).collect();
+    runs.extend(picture.laid().map(|run| words::delays(&run.which)));
+    if let [front, others @ ..] = runs.as_mut_slice()
+        && !others.is_empty()
+    {
+        front.push_str(" (solid)");
+        others.iter_mut().for_each(|run| run.push_str(" (dashed)"));
+    }
     let sheet = if sheet.1 > 1 { format!(" (sheet {} of {})", sheet.0 + 1, sheet.1) } else { String::new() };
-    let runs = if runs.is_empty() { String::new() } else { format!(": {}", runs.join(" and ")) };
+    let runs = if runs.is_empty() { String::new() } else { format!(": {}", runs.join(", ")) };
     format!("{}{runs}{sheet}", picture.scenario.title)
 }
 
 /// The picture in words.
 pub(super) fn describe(
     picture: &Picture<'_>,
+    behind: &Behind<'_>,
     lanes: &[Lane],
     steps: &[Step],
     spots: &[Spot],
@@ -131,6 +164,9 @@ pub(super) fn describe(
         time(range.1),
         scenario.unit
     );
+    for note in behind.notes() {
+        text += &format!(" {note}");
+    }
     let list = |label: &str, entries: &mut dyn Iterator<Item = String>| {
         let all: Vec<String> = entries.collect();
         let more = if all.len() > LISTED { format!("; and {} more", all.len() - LISTED) } else { String::new() };

@@ -1,9 +1,11 @@
 //! Which nets go on which sheet.
 
+use std::collections::BTreeSet;
+
 use super::{MOST_LANES, MOST_SHEETS, Nets, Picture};
 use crate::circuit::NetId;
 
-/// Nets by sheet, each sheet in net order, and what no sheet shows.
+/// Nets by sheet, in the order of their lanes, and what no sheet shows.
 pub(super) struct Choice {
     pub sheets: Vec<Vec<NetId>>,
     pub left_out: Vec<NetId>,
@@ -16,8 +18,8 @@ pub(super) fn choose(picture: &Picture<'_>) -> Choice {
         Nets::These(nets) => nets.iter().copied().filter(|net| net.index() < circuit.net_count()).collect(),
         Nets::All | Nets::Telling => circuit.nets().collect(),
     };
-    wanted.sort_unstable();
-    wanted.dedup();
+    let mut seen = BTreeSet::new();
+    wanted.retain(|net| seen.insert(*net));
     let most = if picture.nets == Nets::Telling { MOST_LANES } else { MOST_LANES * MOST_SHEETS };
     let mut left_out = Vec::new();
     if wanted.len() > most {
@@ -26,8 +28,8 @@ pub(super) fn choose(picture: &Picture<'_>) -> Choice {
         ranked.sort_by_key(|net| (class[net.index()], *net));
         left_out = ranked.split_off(most);
         left_out.sort_unstable();
-        ranked.sort_unstable();
-        wanted = ranked;
+        let left: BTreeSet<NetId> = left_out.iter().copied().collect();
+        wanted.retain(|net| !left.contains(net));
     }
     let many = wanted.len().div_ceil(MOST_LANES).max(1);
     let each = wanted.len().div_ceil(many).max(1);

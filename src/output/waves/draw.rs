@@ -4,11 +4,12 @@ use maud::{Markup, html};
 
 use super::Picture;
 use super::arrows;
+use super::bands::Drawn;
 use super::flags::OFFSET;
 use super::frame::{Frame, LINE, Lane, MARGIN, SPACE, SWING, WIDTH};
 use super::lane::{Line, line, number};
 use super::places::Bracket;
-use crate::output::ink::{BODY, FINDING, INK, QUIET, REST, SECOND, SMALL};
+use crate::output::ink::{BAND, BODY, FINDING, INK, QUIET, REST, SMALL};
 use crate::output::words::clean;
 
 /// White behind text that lines pass through.
@@ -126,7 +127,13 @@ fn draw_lane(id: &str, lane: &Lane, frame: &Frame) -> Markup {
             text x=(number(frame.left - SPACE)) y=(number(middle)) text-anchor="end" font-size=(number(BODY)) {
                 (lane.name)
             }
-            // further runs first: the front one lies on top
+            // bands and further runs first: the front one lies on top
+            @for band in &lane.bands { (draw_band(band, lane)) }
+            @for stretch in lane.laid.iter().flatten() {
+                @let from = if stretch.from == frame.from { frame.left } else { frame.axis.x(stretch.from) };
+                @let to = stretch.to.map_or(end, |to| frame.axis.x(to));
+                (draw_wave(id, &line(&stretch.wave, &frame.axis, (from, to), lane.top, lane.bottom, frame.solid), lane, true))
+            }
             @for (i, wave) in lane.waves.iter().enumerate().rev() {
                 (draw_wave(id, &line(wave, &frame.axis, (frame.left, end), lane.top, lane.bottom, frame.solid), lane, i > 0))
             }
@@ -140,6 +147,17 @@ fn draw_lane(id: &str, lane: &Lane, frame: &Frame) -> Markup {
     }
 }
 
+/// A band with slanted ends, under the lines.
+fn draw_band(band: &Drawn, lane: &Lane) -> Markup {
+    let corners = band.corners(lane.top, lane.bottom);
+    let points: Vec<String> = corners.iter().map(|(x, y)| format!("{},{}", number(*x), number(*y))).collect();
+    html! {
+        polygon points=(points.join(" ")) fill=(BAND) stroke=(QUIET) stroke-width="0.6" {
+            title { (clean(&format!("{} {}", lane.full_name, band.title))) }
+        }
+    }
+}
+
 fn draw_wave(id: &str, line: &Line, lane: &Lane, further: bool) -> Markup {
     let (top, height) = (number(lane.top), number(lane.bottom - lane.top));
     html! {
@@ -149,11 +167,11 @@ fn draw_wave(id: &str, line: &Line, lane: &Lane, further: bool) -> Markup {
         }
         @for (from, to) in &line.blocks {
             rect x=(number(from - 0.8)) y=(top) width=(number(to - from + 1.6)) height=(height)
-                fill=(if further { SECOND } else { INK }) {}
+                fill=(if further { QUIET } else { INK }) {}
         }
         @if !line.path.is_empty() {
             @if further {
-                path d=(line.path) fill="none" stroke=(SECOND) stroke-width="1.6" stroke-dasharray="4 2" {}
+                path d=(line.path) fill="none" stroke=(QUIET) stroke-width="1.1" stroke-dasharray="3 2" {}
             } @else {
                 path d=(line.path) fill="none" stroke=(INK) stroke-width="1.6" {}
             }

@@ -2,8 +2,11 @@
 
 use super::arrows::{self, Chain};
 use super::axis::Axis;
+use super::bands::Drawn;
+use super::behind::Behind;
 use super::captions::{self, Seen};
 use super::flags::{self, Flags};
+use super::laid::Stretch;
 use super::lane::Wave;
 use super::marks::{self, Ending, Spot, Step};
 use super::places::{self, BRACKET, Bracket, Rest};
@@ -49,6 +52,10 @@ pub(super) struct Lane {
     pub bottom: f64,
     /// One wave a run, the front one first.
     pub waves: Vec<Wave>,
+    /// Runs that are laid on the front one, stretch by stretch.
+    pub laid: Vec<Vec<Stretch>>,
+    /// Where it may change.
+    pub bands: Vec<Drawn>,
     /// What stands at the right end.
     pub value: String,
     /// The run ends while this net may still move.
@@ -64,6 +71,8 @@ pub(super) struct Frame {
     pub left: f64,
     pub right: f64,
     pub axis: Axis,
+    /// The first instant that is drawn.
+    pub from: Time,
     pub steps: Vec<Step>,
     pub flags: Flags,
     /// Top of the lanes.
@@ -92,10 +101,18 @@ pub(super) struct Frame {
 
 impl Frame {
     /// Lays out sheet `sheet.0` of `sheet.1`, from top to bottom.
-    pub fn new(picture: &Picture<'_>, nets: &[NetId], left_out: &[NetId], sheet: (usize, usize)) -> Frame {
+    pub fn new(
+        picture: &Picture<'_>,
+        behind: &Behind<'_>,
+        nets: &[NetId],
+        left_out: &[NetId],
+        sheet: (usize, usize),
+    ) -> Frame {
         let scenario = picture.scenario;
         let front = picture.front();
-        let range = picture.part().unwrap_or_else(|| (Time::ZERO, picture.end()));
+        let end = picture.end().max(behind.end());
+        let part = picture.part(end);
+        let range = part.unwrap_or((Time::ZERO, end));
         let range = (range.0, range.1.max(range.0 + Span::TICK));
         let shown = |from: Time, to: Time| from <= range.1 && range.0 <= to;
         let mut steps: Vec<Step> = front.map_or_else(Vec::new, |run| marks::steps(scenario, run));
@@ -103,16 +120,18 @@ impl Frame {
         let mut endings: Vec<Ending> = front.map_or_else(Vec::new, |run| marks::endings(scenario, run));
         endings.retain(|ending| shown(ending.at, ending.at));
         let mut spots: Vec<Spot> = front.map_or_else(Vec::new, |run| marks::spots(scenario, picture.asked, run));
+        let findings = spots.len();
         spots.retain(|spot| shown(spot.from, spot.to));
+        let outside = findings - spots.len();
 
         let names = nets.iter().map(|net| width(words::net(scenario, *net), BODY)).fold(LEAST_NAMES, f64::max);
         let left = MARGIN + names.min(NAMES) + SPACE;
         let right = WIDTH - MARGIN - VALUES;
         let changes = picture.runs().flat_map(|run| run.trace.changes.iter().map(|change| change.at));
         let marked = steps.iter().map(|step| step.at).chain(endings.iter().map(|ending| ending.at));
-        let mut busy: Vec<Time> = changes.chain(marked).collect();
+        let mut busy: Vec<Time> = changes.chain(marked).chain(behind.busy()).collect();
         busy.sort_unstable();
-        let axis = Axis::new(range, &busy, left, right - TAIL, scenario.unit);
+        let axis = Axis::new(range, &busy, &behind.whole(), (left, right - TAIL), scenario.unit);
 
         let at: Vec<(f64, &Step)> = steps.iter().map(|step| (axis.x(step.at), step)).collect();
         let flags = flags::place(&at, (MARGIN, WIDTH - MARGIN));
@@ -120,7 +139,8 @@ impl Frame {
 
         let mut missing = false;
         let last = last_window(front, range.1);
-        let lanes = Lanes::new(picture, nets, &Given { range, axis: &axis, left, spots: &spots, last }, lanes_top);
+        let lanes =
+            Lanes::new(picture, nets, &Given { range, axis: &axis, left, spots: &spots, last, behind }, lanes_top);
         missing |= lanes.missing;
         let others: Vec<&Spot> = spots.iter().filter(|spot| spot.net.is_none()).collect();
         let mut y = lanes.end;
@@ -135,8 +155,25 @@ impl Frame {
 
         let edges: usize = lanes.lanes.iter().flat_map(|lane| &lane.waves).map(|wave| wave.edges.len()).sum();
         let solid = edges > MOST_EDGES;
-        let seen = Seen { nets, left_out, sheet, solid, missing, steps: &steps, spots: &spots, axis: &axis };
-        let notes = captions::notes(picture, &seen);
+        let seen = Seen {
+            nets,
+            left_out,
+            sheet,
+            solid,
+            missing,
+            steps: &steps,
+            spots: &spots,
+            outside,
+            part,
+            end,
+            behind,
+            axis: &axis,
+        };
+        let mut notes = captions::notes(picture, &seen);
+        let chains = arrows::chains(picture, &lanes.lanes, &axis, range);
+        if chains.iter().any(|chain| chain.goes_back) {
+            notes.push(format!("Of a long path the last {} arrows are drawn.", arrows::MOST));
+        }
         let key = if flags.numbered { captions::key(picture, &steps) } else { Vec::new() };
         let notes_y = y + 8.0 + LINE;
         y += if notes.is_empty() { 0.0 } else { 8.0 + notes.len() as f64 * LINE };
@@ -146,14 +183,14 @@ impl Frame {
         let full_title = captions::title(picture, sheet);
         // bold letters are wider than the estimate
         let cut = cut_end(&full_title, 14.0, (WIDTH - 2.0 * MARGIN) / 1.15);
-        let chains = arrows::chains(picture, &lanes.lanes, &axis, range);
         Frame {
             title: cut.unwrap_or_else(|| full_title.clone()),
             full_title,
-            description: captions::describe(picture, &lanes.lanes, &steps, &spots, range),
+            description: captions::describe(picture, behind, &lanes.lanes, &steps, &spots, range),
             left,
             right,
             axis,
+            from: range.0,
             steps,
             flags,
             lanes_top,
@@ -182,6 +219,7 @@ struct Given<'a> {
     left: f64,
     spots: &'a [Spot],
     last: Last<'a>,
+    behind: &'a Behind<'a>,
 }
 
 /// All lanes of a sheet.
@@ -200,8 +238,11 @@ impl Lanes {
         let starts: Vec<_> = picture.runs().map(|run| &run.trace.start).collect();
         let changes: Vec<_> = picture.runs().map(|run| run.trace.by_net(circuit.net_count())).collect();
         let mut all = Lanes { lanes: Vec::with_capacity(nets.len()), hairline: None, missing: false, end: top };
+        // in an order of its own a picture may have inputs anywhere
+        let inputs = nets.iter().take_while(|net| circuit.is_input(**net)).count();
+        let parted = !nets[inputs..].iter().any(|net| circuit.is_input(*net));
         for (i, net) in nets.iter().enumerate() {
-            if i > 0 && !circuit.is_input(*net) && circuit.is_input(nets[i - 1]) {
+            if i > 0 && i == inputs && parted {
                 all.hairline = Some(all.end + 4.0);
                 all.end += 8.0;
             }
@@ -219,6 +260,8 @@ impl Lanes {
                 Some((_, sign)) => sign.to_string(),
                 None => end.map_or_else(String::new, |value| value.to_string()),
             };
+            let laid = given.behind.laid.iter().map(|(run, laid)| laid.stretches(run, *net, given.range)).collect();
+            let bands = given.behind.bands.iter().flat_map(|it| it.drawn(*net, given.axis, given.range)).collect();
             let (top, bottom) = (all.end + 5.0, all.end + 5.0 + SWING);
             let own: Vec<&Spot> = given.spots.iter().filter(|spot| spot.net == Some(*net)).collect();
             let (brackets, rows) = places::brackets(&own, given.axis, given.left, bottom + 4.0, &mut all.missing);
@@ -227,7 +270,19 @@ impl Lanes {
             let cut = cut_middle(&full_name, BODY, given.left - SPACE - MARGIN);
             let name = cut.unwrap_or_else(|| full_name.clone());
             let is_open = open.is_some();
-            all.lanes.push(Lane { net: *net, name, full_name, top, bottom, waves, value, is_open, brackets });
+            all.lanes.push(Lane {
+                net: *net,
+                name,
+                full_name,
+                top,
+                bottom,
+                waves,
+                laid,
+                bands,
+                value,
+                is_open,
+                brackets,
+            });
         }
         all
     }

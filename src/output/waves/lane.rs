@@ -118,7 +118,7 @@ mod tests {
     }
 
     fn axis(ns: u64) -> Axis {
-        Axis::new((Time::ZERO, Time::from_fs(ns * 1_000_000)), &[], 0.0, 100.0, Unit::Ns)
+        Axis::new((Time::ZERO, Time::from_fs(ns * 1_000_000)), &[], &[], (0.0, 100.0), Unit::Ns)
     }
 
     #[test]

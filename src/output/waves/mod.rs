@@ -5,6 +5,8 @@
 
 mod arrows;
 mod axis;
+mod bands;
+mod behind;
 mod captions;
 mod changes;
 mod choose;
@@ -12,6 +14,7 @@ mod csv;
 mod draw;
 mod flags;
 mod frame;
+mod laid;
 mod lane;
 mod marks;
 mod places;
@@ -20,7 +23,8 @@ use crate::circuit::NetId;
 use crate::findings::{Asked, RacePair};
 use crate::review::RunReport;
 use crate::scenario::Scenario;
-use crate::time::Time;
+use crate::sweep::SweepReport;
+use crate::time::{Span, Time};
 
 pub use self::changes::{Changes, Overflow};
 pub use self::csv::csv;
@@ -35,11 +39,17 @@ pub const MOST_EDGES: usize = 5_000;
 /// One thing drawn on the common time axis, the first at the front.
 #[derive(Clone, Copy, Debug)]
 pub enum Layer<'a> {
-    /// One run: its waves, and, for the first of a picture, its steps, settling times and findings.
+    /// One run: its waves, and, for the first of a picture, its steps, settling times and findings. Further runs are thin
+    /// and dashed, at their own times.
     Run(&'a RunReport),
+    /// A further run, thin and dashed; each of its windows is laid on the first run's window of the same step.
+    Laid(&'a RunReport),
+    /// Where nets change in the samples of a sweep, as grey bands, laid on the first run's windows in the same way. Nothing
+    /// where the sweep did not keep that.
+    Bands(&'a SweepReport),
 }
 
-/// Which nets get a lane. Lanes come in net order: the order of the file, inputs first.
+/// Which nets get a lane. Lanes come in net order, the order of the file with inputs first, if it is not said otherwise.
 #[derive(Clone, Debug, Default, PartialEq, Eq)]
 pub enum Nets {
     /// All, on as many sheets as it takes, up to [`MOST_SHEETS`].
@@ -48,7 +58,7 @@ pub enum Nets {
     /// At most one sheet: all if they fit, else those that tell most: nets of findings, watched nets, inputs that move,
     /// loop nets, other nets that move.
     Telling,
-    /// These.
+    /// These, in this order.
     These(Vec<NetId>),
 }
 
@@ -83,10 +93,25 @@ pub struct Sheet {
 }
 
 impl<'a> Picture<'a> {
-    /// A picture of one run, with all its nets and all its time.
+    /// A picture of one run, with the nets and the time that the scenario's `[plot]` chooses, else all.
     pub fn of_run(scenario: &'a Scenario, asked: &'a Asked, run: &'a RunReport, id: &str) -> Picture<'a> {
         let layers = vec![Layer::Run(run)];
-        Picture { scenario, asked, layers, nets: Nets::All, race: None, range: None, id: id.to_string() }
+        let nets = scenario.plot.nets.clone().map_or(Nets::All, Nets::These);
+        Picture { scenario, asked, layers, nets, race: None, range: scenario.plot.span(), id: id.to_string() }
+    }
+
+    /// The same with a further run laid on the first, behind it.
+    #[must_use]
+    pub fn against(mut self, run: &'a RunReport) -> Picture<'a> {
+        self.layers.push(Layer::Laid(run));
+        self
+    }
+
+    /// The same with may-change bands.
+    #[must_use]
+    pub fn with_bands(mut self, sweep: &'a SweepReport) -> Picture<'a> {
+        self.layers.push(Layer::Bands(sweep));
+        self
     }
 
     /// The run at the front.
@@ -96,11 +121,13 @@ impl<'a> Picture<'a> {
 
     /// From when to when it is drawn; `None` for the whole of the run. A run of which not everything was kept is drawn as
     /// far as it was.
-    fn part(&self) -> Option<(Time, Time)> {
+    fn part(&self, end: Time) -> Option<(Time, Time)> {
+        let range = self.range.map(|(from, to)| (from, to.min(end).max(from + Span::TICK)));
+        let range = range.filter(|(from, to)| *from > Time::ZERO || *to < end);
         let Some(after) = self.runs().filter_map(|run| run.trace.cut).map(|cut| cut.after).min() else {
-            return self.range;
+            return range;
         };
-        match self.range {
+        match range {
             Some((from, to)) if from < after => Some((from, to.min(after))),
             _ => Some((Time::ZERO, after)),
         }
@@ -118,8 +145,17 @@ impl<'a> Picture<'a> {
     }
 
     fn runs(&self) -> impl Iterator<Item = &'a RunReport> {
-        self.layers.iter().map(|layer| match layer {
-            Layer::Run(run) => *run,
+        self.layers.iter().filter_map(|layer| match layer {
+            Layer::Run(run) => Some(*run),
+            Layer::Laid(_) | Layer::Bands(_) => None,
+        })
+    }
+
+    /// The runs that are laid on the front one.
+    fn laid(&self) -> impl Iterator<Item = &'a RunReport> {
+        self.layers.iter().filter_map(|layer| match layer {
+            Layer::Laid(run) => Some(*run),
+            Layer::Run(_) | Layer::Bands(_) => None,
         })
     }
 }
@@ -128,8 +164,9 @@ impl<'a> Picture<'a> {
 pub fn sheets(picture: &Picture<'_>) -> Vec<Sheet> {
     let choice = choose::choose(picture);
     let many = choice.sheets.len();
+    let behind = behind::Behind::of(picture);
     let draw = |(number, nets): (usize, Vec<NetId>)| {
-        let frame = frame::Frame::new(picture, &nets, &choice.left_out, (number, many));
+        let frame = frame::Frame::new(picture, &behind, &nets, &choice.left_out, (number, many));
         Sheet { svg: draw::svg(picture, &frame), nets, left_out: choice.left_out.clone() }
     };
     choice.sheets.into_iter().enumerate().map(draw).collect()

@@ -8,6 +8,7 @@ mod conditions;
 mod context;
 mod delays;
 mod padding;
+mod plot;
 mod reference;
 mod rules;
 mod said;
@@ -19,6 +20,7 @@ mod tests;
 use std::sync::Arc;
 
 pub use conditions::NewCondition;
+pub use plot::NewPlot;
 pub use said::*;
 pub use said_rules::*;
 pub use stimulus::MAX_MOMENTS;
@@ -76,6 +78,7 @@ pub struct Builder {
     rules: NewRules,
     reference: Option<NewReference>,
     padding: Option<Vec<Said<String>>>,
+    plot: NewPlot,
     limit_transitions: Said<u64>,
     limit_time: Option<Said<Amount>>,
     samples: Said<u64>,
@@ -124,6 +127,7 @@ impl Builder {
             rules: NewRules::default(),
             reference: None,
             padding: None,
+            plot: NewPlot::default(),
             limit_transitions: Said::from(Limits::default().transitions),
             limit_time: None,
             samples: Said::from(plan.samples),
@@ -159,6 +163,12 @@ impl Builder {
     /// An input and its value before the first step. Inputs keep the order of these calls.
     pub fn input(&mut self, name: impl Into<Said<String>>, value: bool) -> &mut Builder {
         self.inputs.push((name.into(), value));
+        self
+    }
+
+    /// Another value before the first step, for an input that was told.
+    pub fn input_begins(&mut self, name: &str, value: bool) -> &mut Builder {
+        self.inputs.iter_mut().filter(|(input, _)| input.what == name).for_each(|(_, before)| *before = value);
         self
     }
 
@@ -337,6 +347,12 @@ impl Builder {
         self
     }
 
+    /// What pictures of waves show: nets in the order of their lanes, and a span of time.
+    pub fn plot(&mut self, plot: NewPlot) -> &mut Builder {
+        self.plot = plot;
+        self
+    }
+
     /// Faults found elsewhere: [`Builder::finish`] fails with them and its own.
     pub fn faults(&mut self, faults: Faults) -> &mut Builder {
         self.faults.append(faults);
@@ -361,6 +377,7 @@ impl Builder {
         let outputs = circuit::outputs(&mut context, self.outputs.as_deref(), &network);
         let begin = self.begin_of(&mut context);
         let padding = padding::check(&mut context, self.padding.as_deref(), &network);
+        let plot = plot::check(&mut context, &self.plot);
         let stimulus = stimulus::check(&mut context, &self, &delays);
         let rules = rules::check(&mut context, &self.rules, &outputs);
         let reference = reference::check(&mut context, &self, &outputs);
@@ -392,6 +409,7 @@ impl Builder {
             limits,
             plan,
             padding,
+            plot,
             conditions,
             notes: in_order(context.notes),
             not_analysed: in_order(context.not_analysed),
