@@ -4,14 +4,13 @@ use std::collections::BTreeMap;
 
 use super::claim::{Call, Claim, Variation};
 use super::cycles::{Cycle, RestVerdict};
-use super::explored::{Explored, Fired, Mode, Rest};
+use super::explored::{Explored, Fired, Mode, Rest, START};
 use super::goals::Goal;
 use super::key::{Mover, bit};
 use super::plant::Plant;
 use super::prove::{Prover, Unsaid, World};
 use super::watch::Nothing;
 use crate::instance::{Instance, Which};
-use crate::scenario::Place;
 
 /// The blocks of a cycle; `None` where wires may overtake, so that values do not tell what happened.
 fn once_round(plant: &Plant, cycle: &Cycle) -> Option<Vec<Fired>> {
@@ -68,16 +67,15 @@ impl Prover<'_> {
         if parts.is_empty() {
             return Err(Unsaid { call: Call::Undecided, reason: "there is no gate that could oscillate".to_string() });
         }
-        let stimulus = self.scenario.stimulus.clone();
-        let waits = stimulus.steps.iter().any(|step| matches!(step.place, Place::When { .. }));
+        let (steps, clocked) = (self.scenario.stimulus.steps.len(), !self.scenario.stimulus.clocks.is_empty());
         for question in questions {
             let moment = self.asked.questions[*question as usize].moment;
             let bad = |world: &World, found: &Explored| -> Vec<u32> {
                 let stretch = self.steps_of(&world.plant, *question);
                 let here = |rest: &Rest| match moment {
                     Some(_) => stretch.contains(&rest.steps),
-                    // it breaks the rule of a whole run only if it ends at rest
-                    None => waits || !stimulus.clocks.is_empty() || rest.steps as usize == stimulus.steps.len(),
+                    // a whole run breaks the rule only if it reaches its last window, which began and ends at rest, uncut
+                    None => clocked || rest.steps as usize == steps && rest.origin <= START,
                 };
                 found.rests.iter().filter(|(rest, _)| here(rest)).map(|(_, node)| *node).collect()
             };
