@@ -281,10 +281,11 @@ fn nets_without_a_sheet_are_named() {
 fn the_files_of_a_review() {
     let scenario = lock();
     let review = results::review(&scenario);
-    let bundle = bundle::of_review(&scenario, &review);
+    let bundle = bundle::of_review(&scenario, &review, &Page::default());
     let names: Vec<&str> = bundle.files.iter().map(|file| file.name.as_str()).collect();
     let wanted = [
         "result.json",
+        "report.html",
         "waves-typical.svg",
         "waves-typical.csv",
         "waves-typical.vcd",
@@ -312,7 +313,7 @@ fn the_files_of_a_review() {
     ];
     assert_eq!(names, wanted);
     assert!(bundle.notes[0].starts_with("3 of 6 findings have a picture"), "{:?}", bundle.notes);
-    assert_eq!(bundle, bundle::of_review(&scenario, &review), "the same bytes again");
+    assert_eq!(bundle, bundle::of_review(&scenario, &review, &Page::default()), "the same bytes again");
 }
 
 /// The map of a table with one state variable.
@@ -429,7 +430,7 @@ fn lists() {
     let review = results::review(&scenario);
     golden("outcomes.csv", &tables::outcomes(&scenario, &review.sweep));
     golden("findings.csv", &tables::findings(&scenario, &review.asked, &review.sweep));
-    let bundle = bundle::of_review(&scenario, &review);
+    let bundle = bundle::of_review(&scenario, &review, &Page::default());
     let causes = bundle.files.iter().find(|file| file.name == "causes.csv").unwrap();
     golden("causes.csv", std::str::from_utf8(&causes.bytes).unwrap());
     golden("rules.csv", &tables::rules(&scenario, &review.sweep, None));

@@ -30,6 +30,7 @@ mod margins;
 mod outcomes_agree;
 mod outside;
 mod paddings;
+mod pages;
 mod parts;
 mod paths;
 mod per_event;
