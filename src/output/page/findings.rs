@@ -64,7 +64,7 @@ fn article(told: &Told<'_>, files: &Files<'_>, number: usize, finding: &Finding)
             (paths(told, finding, why))
             @if let Some(run) = run { (waveforms::draw(scenario, run)) }
             (reasons(told, files, number, why))
-            @if finding.breaks_rule { (case(told, &id, run.map(|run| &run.run.instance), why)) }
+            @if finding.breaks_rule { (case(told, number, run.map(|run| &run.run.instance), why)) }
             @match text::replay(told.page, told.review, &files.searched, finding) {
                 Some(replay) => { p.leads { "Replays the failing case:" } (command(&replay)) }
                 None => { p.unsure { "No single case shows it, so there is none to replay." } }
@@ -110,7 +110,7 @@ fn reasons(told: &Told<'_>, files: &Files<'_>, number: usize, why: Option<&Why>)
 
 /// The failing case and the reduced case as a table of delays: what must leave typical first, then what decides, then the
 /// rest in the order of the file.
-fn case(told: &Told<'_>, id: &str, failing: Option<&Instance>, why: Option<&Why>) -> Markup {
+fn case(told: &Told<'_>, number: usize, failing: Option<&Instance>, why: Option<&Why>) -> Markup {
     let scenario = told.scenario;
     let needs = why.and_then(|why| why.needs.as_ref());
     if failing.is_none() && needs.is_none() {
@@ -162,13 +162,12 @@ fn case(told: &Told<'_>, id: &str, failing: Option<&Instance>, why: Option<&Why>
     head.extend(needs.map(|_| ("reduced case".to_string(), true)));
     head.extend(["least", "typical", "greatest"].map(|it| (it.to_string(), true)));
     head.push(("over all failing draws".to_string(), false));
-    let table_id = format!("{id}-case");
+    let table_id = format!("{}-case", anchor(number));
+    let more = needs.filter(|needs| !needs.typical_shows_it()).map_or("", |_| ": what must leave typical first");
     let table = Table {
         id: &table_id,
-        caption: match needs.filter(|needs| !needs.typical_shows_it()) {
-            Some(_) => "The case that shows it: what must leave typical first",
-            None => "The case that shows it",
-        },
+        // regions are told apart by their names
+        caption: &format!("The case that shows finding {}{more}", number + 1),
         head: head.iter().map(|(title, number)| (title.as_str(), *number)).collect(),
         rows: rows.iter().take(QUANTITIES).map(row).collect(),
     };

@@ -54,7 +54,12 @@ impl Table<'_> {
                     caption id=(caption) class=[(self.caption == heading).then_some("unseen")] { (clean(self.caption)) }
                     thead { tr {
                         @for (title, number) in columns.iter().map(|column| &self.head[*column]) {
-                            th scope="col" class=[number.then_some("number")] { (clean(title)) }
+                            // a corner without a title is no header
+                            @if title.is_empty() {
+                                td {}
+                            } @else {
+                                th scope="col" class=[number.then_some("number")] { (clean(title)) }
+                            }
                         }
                     } }
                     tbody {

@@ -84,9 +84,13 @@ pub(super) fn beside_claims(paper: &mut Paper, scenario: &Scenario, asked: &Aske
     if !proof.windows.is_empty() {
         paper.heading("Windows, over all delays");
         let most = paper.most(WINDOWS, WINDOWS_OF_A_PAGE);
-        let mut table =
-            Table::new().text("step").number("states", 0).number("settles from", 0).number("to", 0).text("");
-        for window in proof.windows.iter().take(most) {
+        let mut table = Table::new().text("step").number("states", 0).number("settles from", 0).number("to", 0);
+        let shown = || proof.windows.iter().take(most);
+        let remarked = shown().any(|window| window.settling_but_for_ties || window.settling_below);
+        if remarked {
+            table = table.text("remark");
+        }
+        for window in shown() {
             let label = scenario.stimulus.moments[window.moment as usize].label.clone();
             let states = window.states.as_ref().map_or("?".to_string(), |it| words::count(it.len() as u64));
             let [least, most] = match window.settling {
@@ -98,7 +102,9 @@ pub(super) fn beside_claims(paper: &mut Paper, scenario: &Scenario, asked: &Aske
                 (false, true) => "less than that",
                 (false, false) => "",
             };
-            table.row(Tone::Plain, vec![label, states, least, most, note.to_string()]);
+            let mut cells = vec![label, states, least, most];
+            cells.extend(remarked.then(|| note.to_string()));
+            table.row(Tone::Plain, cells);
         }
         paper.table(&table);
         super::more(paper, proof.windows.len().saturating_sub(most), "proof.json");
