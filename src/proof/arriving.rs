@@ -125,17 +125,18 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
     /// on at this very instant.
     fn pattern_came(&mut self, number: u32, parent: u32, movers: &[Mover], lasting: bool, rested: Option<Rest>) {
         let begins = parent == u32::MAX;
+        // what is due at the start comes together with the step
+        let ends = !begins && !self.semantics.peeks();
         let whole = std::mem::take(&mut self.entry);
         let mut node = None;
-        if lasting || begins || self.semantics.peeks() {
+        if lasting || !ends {
             self.words.copy_from_slice(self.found.key(number).words);
             self.excited.clone_from(&self.known.infos[number as usize].excited);
-            // what is due at the start comes together with the step
-            KeyMut { words: &mut self.words, layout: self.layout }.set_pattern(true, !begins);
+            KeyMut { words: &mut self.words, layout: self.layout }.set_pattern(true, ends);
             let next = self.intern();
             let (old, new) = (&self.known.infos[number as usize], &self.known.infos[next as usize]);
             self.work.load(whole.size, &whole.bounds);
-            if !begins {
+            if ends {
                 for (row, most) in &old.limits {
                     self.work.bound(*row, 0, self.semantics.lasts(*most));
                 }
