@@ -155,6 +155,7 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
             not_judged: if i == 2 { vec![(Reason::Oscillating, 7), (Reason::Unsettled, 3)] } else { Vec::new() },
             margin: question.bound.map(|bound| i128::from(bound.fs()) - 2_345_678 * i as i128),
             margin_sample: question.bound.map(|_| 42),
+            margins: margins(question, i as i64),
             at_most: (i == 2).then_some(AtMost { share: 0.000_299_8, of: 9_990, boards: false }),
         })
         .collect();
