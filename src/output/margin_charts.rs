@@ -13,15 +13,17 @@ use crate::sweep::SweepReport;
 use crate::time::{Span, rounded};
 
 /// Size of a panel, pixels.
-const PANEL: (u32, u32) = (500, 250);
+const PANEL: (u32, u32) = (500, 264);
 /// Height of the title, pixels.
 const HEAD: u32 = 34;
 /// Height of a line of text, pixels.
 const LINE: u32 = 16;
 /// Most rules without a margin that are named.
 const MOST_NAMED: usize = 8;
-/// Most bars that get an outline.
-const MOST_OUTLINED: usize = 24;
+/// Narrower bars get no outline, pixels.
+const OUTLINED: f64 = 12.0;
+/// The least height of a bar, as a share of the highest: one draw of very many can be seen.
+const LEAST_HEIGHT: f64 = 0.012;
 /// Space at the left of the axis, pixels: margin and labels.
 const LEFT: (u32, u32) = (10, 60);
 /// Top of the axis within a panel, pixels.
@@ -108,12 +110,13 @@ fn panel(area: &Area<'_>, scenario: &Scenario, rule: &OfRule<'_>) -> Drawn {
     let texts = [(rule.title(scenario), ink::BODY), (rule.figures(scenario), ink::SMALL), (rule.without(), ink::SMALL)];
     for (i, (text, size)) in texts.into_iter().enumerate() {
         let text = words::clean(&text);
-        let text = cut_end(&text, size, f64::from(PANEL.0) - 84.0).unwrap_or(text);
+        let text = cut_end(&text, size, f64::from(PANEL.0) - 78.0).unwrap_or(text);
         let font = ("sans-serif", size * 1.24).into_font().color(&rgb(ink::INK));
         area.draw(&Text::new(text, ((LEFT.0 + LEFT.1) as i32, 15 * i as i32), font))?;
     }
     let mut chart = ChartBuilder::on(area)
         .margin_top(TOP)
+        .margin_bottom(14)
         .margin_right(16)
         .margin_left(LEFT.0)
         .set_label_area_size(LabelAreaPosition::Left, LEFT.1)
@@ -133,9 +136,10 @@ fn panel(area: &Area<'_>, scenario: &Scenario, rule: &OfRule<'_>) -> Drawn {
         .x_desc(format!("margin [{unit}], in bars of {}", rounded(i128::from(wide))))
         .y_desc("draws")
         .draw()?;
-    let bar = |(from, below, count): &(i128, i128, u64)| [(value(*from), 0.0), (value(*below), *count as f64)];
+    let height = |count: u64| (count as f64).max(tallest as f64 * LEAST_HEIGHT);
+    let bar = |(from, below, count): &(i128, i128, u64)| [(value(*from), 0.0), (value(*below), height(*count))];
     // outlines would fill narrow bars
-    let narrow = (last.1 - first.0) / i128::from(wide) > MOST_OUTLINED as i128 || first.0 > 0 || last.1 < 0;
+    let narrow = value(i128::from(wide)) / (high - low + 2.0 * room) * pixels < OUTLINED;
     let kept = rgb(if narrow { ink::QUIET } else { ink::BAND });
     let fill = |it: &(i128, i128, u64)| if it.0 < 0 { rgb(ink::FINDING) } else { kept }.filled();
     chart.draw_series(bars.iter().map(|it| Rectangle::new(bar(it), fill(it))))?;
@@ -170,7 +174,11 @@ fn label(area: &Area<'_>, text: &'static str, at: (i32, i32), side: HPos, ink: &
 
 /// The chart in words.
 fn alternative(scenario: &Scenario, shown: &[OfRule<'_>], notes: &[String]) -> String {
-    let each = shown.iter().map(|it| format!("{}: {}", it.title(scenario), it.figures(scenario)));
+    let each = shown.iter().map(|it| {
+        let more = it.without();
+        let more = if more.is_empty() { more } else { format!("; {more}") };
+        format!("{}: {}{more}", it.title(scenario), it.figures(scenario))
+    });
     let all: Vec<String> = each.chain(notes.iter().cloned()).map(|it| words::sentence(&it)).collect();
     format!("Margins of rules. {}", all.join(" "))
 }

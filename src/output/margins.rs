@@ -82,7 +82,7 @@ impl<'a> OfRule<'a> {
         about_rule(scenario, &self.first.question, false)
     }
 
-    /// `least -1.2 ns (sample 8, upper calls); broken in 3 of 400 draws`, or that there is none.
+    /// `3 of 400 margins below 0; least -1.2 ns (sample 8, step upper calls)`, or that there is none.
     pub fn figures(&self, scenario: &Scenario) -> String {
         let Some((least, rule)) = self.least else { return "no margin in any draw".to_string() };
         let mut at: Vec<String> = rule.margin_sample.iter().map(|sample| format!("sample {sample}")).collect();
@@ -91,16 +91,14 @@ impl<'a> OfRule<'a> {
         }
         let at = if at.is_empty() { String::new() } else { format!(" ({})", at.join(", ")) };
         let (broken, all) = (words::count(self.margins.broken()), many(self.margins.len(), "margin"));
-        let steps = if self.steps > 1 { format!(" of {}", many(self.steps as u64, "step")) } else { String::new() };
-        format!("least {}{at}; {broken} of {all}{steps} below 0", rounded(least))
+        format!("{broken} of {all} below 0; least {}{at}", rounded(least))
     }
 
-    /// Draws without a margin; empty if there are none.
+    /// How many steps are counted together, and draws without a margin; empty for one step and none such.
     pub fn without(&self) -> String {
+        let steps = (self.steps > 1).then(|| format!("{} together", many(self.steps as u64, "step")));
         let each = self.without.each().map(|(what, count)| format!("{what} in {}", many(count, "draw")));
-        let each: Vec<String> = each.collect();
-        let steps = if self.steps > 1 && !each.is_empty() { ", added up over the steps" } else { "" };
-        format!("{}{steps}", each.join("; "))
+        steps.into_iter().chain(each).collect::<Vec<_>>().join("; ")
     }
 }
 
