@@ -133,13 +133,13 @@ fn panel(area: &Area<'_>, scenario: &Scenario, rule: &OfRule<'_>) -> Drawn {
         .y_labels(4)
         .x_label_formatter(&|x| words::three(*x))
         .y_label_formatter(&|y| words::count(*y as u64))
-        .x_desc(format!("margin [{unit}], in bars of {}", rounded(i128::from(wide))))
+        .x_desc(format!("margin [{unit}], in bars of {}", rounded(wide)))
         .y_desc("draws")
         .draw()?;
     let height = |count: u64| (count as f64).max(tallest as f64 * LEAST_HEIGHT);
     let bar = |(from, below, count): &(i128, i128, u64)| [(value(*from), 0.0), (value(*below), height(*count))];
     // outlines would fill narrow bars
-    let narrow = value(i128::from(wide)) / (high - low + 2.0 * room) * pixels < OUTLINED;
+    let narrow = value(wide) / (high - low + 2.0 * room) * pixels < OUTLINED;
     let kept = rgb(if narrow { ink::QUIET } else { ink::BAND });
     let fill = |it: &(i128, i128, u64)| if it.0 < 0 { rgb(ink::FINDING) } else { kept }.filled();
     chart.draw_series(bars.iter().map(|it| Rectangle::new(bar(it), fill(it))))?;

@@ -136,7 +136,7 @@ impl Margins {
     /// The width is the least power of two that is no finer than the coarsest class, no finer than the spread of the margins
     /// over `most`, and no finer than the stretch from them to 0 over `4 * most`. Classes are whole within such bars, so
     /// every count is exact, and 0 is between two bars.
-    pub fn bars(&self, most: u64) -> (u64, Vec<(i128, i128, u64)>) {
+    pub fn bars(&self, most: u64) -> (i128, Vec<(i128, i128, u64)>) {
         let (mut classes, mut last) = (self.classes(), self.classes());
         let (Some(first), Some(last)) = (classes.next(), last.next_back()) else { return (1, Vec::new()) };
         let most = i128::from(most.max(1));
@@ -153,7 +153,7 @@ impl Margins {
                 _ => bars.push((from, from + width, count)),
             }
         }
-        (width as u64, bars)
+        (width, bars)
     }
 
     /// Could these be the margins of a rule that was judged and broken so often, the least of which is this?
@@ -224,12 +224,16 @@ mod tests {
 
     #[test]
     fn forged_classes_are_refused() {
-        for forged in [vec![(LAST + 1, 1)], vec![(-2 - LAST, 1)], vec![(0, 0)], vec![(1, 1), (1, 1)], vec![(2, 1), (1, 1)]] {
+        for forged in
+            [vec![(LAST + 1, 1)], vec![(-2 - LAST, 1)], vec![(0, 0)], vec![(1, 1), (1, 1)], vec![(2, 1), (1, 1)]]
+        {
             assert!(Margins::try_from(forged.clone()).is_err(), "{forged:?}");
         }
         let margins = of(&[-3, 4, 4]);
         assert!(margins.fits(3, 1, Some(-3)) && margins.fits(9, 2, Some(-3)));
-        for (judged, broken, least) in [(2, 1, Some(-3)), (3, 0, Some(-3)), (3, 2, Some(-3)), (3, 1, Some(-2)), (3, 1, None)] {
+        for (judged, broken, least) in
+            [(2, 1, Some(-3)), (3, 0, Some(-3)), (3, 2, Some(-3)), (3, 1, Some(-2)), (3, 1, None)]
+        {
             assert!(!margins.fits(judged, broken, least), "{judged} {broken} {least:?}");
         }
         let many = Margins::try_from(vec![(0, u64::MAX), (1, 1)]).unwrap();
@@ -263,7 +267,7 @@ mod tests {
                 let within = values.iter().filter(|it| (from..to).contains(&i128::from(**it))).count();
                 prop_assert_eq!(count, within as u64, "{} to {}", from, to);
             }
-            prop_assert!(bars.iter().all(|bar| bar.1 - bar.0 == i128::from(width) && (bar.0 >= 0 || bar.1 <= 0)));
+            prop_assert!(bars.iter().all(|bar| bar.1 - bar.0 == width && (bar.0 >= 0 || bar.1 <= 0)));
             prop_assert_eq!(bars.iter().map(|bar| bar.2).sum::<u64>(), whole.len());
         }
     }
