@@ -190,8 +190,10 @@ impl Plant {
         let mut inputs = self.initial.clone();
         let (mut end, mut idle) = (None, Vec::new());
         for (number, step) in self.steps.iter().enumerate() {
-            let changes =
-                step.set.iter().any(|(net, value)| self.core[*net as usize] && inputs[*net as usize] != *value);
+            // a contact that surely bounces moves, whatever it leads to
+            let bounces = step.bounce.is_some_and(|bounce| bounce.pairs.0 > 0);
+            let moves = |net: u32, value: bool| bounces || inputs[net as usize] != value;
+            let changes = step.set.iter().any(|(net, value)| self.core[*net as usize] && moves(*net, *value));
             step.set.iter().for_each(|(net, value)| inputs[*net as usize] = *value);
             let window = number as u32 + 1;
             if listed && window > start && changes && !self.may_coincide(number) {
