@@ -117,6 +117,12 @@ pub fn case(
                 toggles.push(Span::ZERO);
             }
             toggles.sort_unstable();
+            // rounded down, others may fall together with the last, which in a draw they never do
+            if let Some((last, others)) = toggles.split_last_mut()
+                && *last > Span::ZERO
+            {
+                others.iter_mut().for_each(|toggle| *toggle = (*toggle).min(*last - Span::TICK));
+            }
         }
     }
     // figures that were tried beyond their ranges must still make a clock
