@@ -107,7 +107,7 @@ outputs = ["y"]
 [inputs]
 a = 0
 [gates]
-y = {{ buf = ["a"], delay = {{ rise = [3, 5], fall = [4, 6] }} }}
+y = {{ buf = ["a"], rise = [3, 5], fall = [4, 6] }}
 [[steps]]
 at = 10
 set = {{ a = 1 }}
@@ -142,7 +142,7 @@ fn a_filter_longer_than_the_bounce() {
 #[test]
 fn as_many_edges_as_there_are_toggles() {
     let edges = |pulses: &str, count: &str| {
-        let text = filter("[20, 30]", pulses, "").replace("{ rise = [3, 5], fall = [4, 6] }", "[1, 2]");
+        let text = filter("[20, 30]", pulses, "").replace("rise = [3, 5], fall = [4, 6]", "delay = [1, 2]");
         call(&text.replace("bounce =", &format!("edges = {{ y = {count} }}\nbounce =")), "edges")
     };
     assert_eq!(edges("[0, 2]", "[1, 5]"), Call::Proved);
