@@ -10,7 +10,7 @@
 use super::explore::Explorer;
 use super::key::{Agent, Info, Key, KeyMut, Mover, Slot, bit};
 use super::passed::Cell;
-use super::plant::{Plant, PlantStep, Ticks};
+use super::plant::{Plant, PlantPlace, PlantStep, Ticks};
 use super::semantics::Semantics;
 use super::watch::Watch;
 use super::zone;
@@ -118,6 +118,16 @@ impl Plant {
     pub(super) fn bouncing(&self) -> usize {
         let of = |step: &PlantStep| step.bounce.map_or(0, |_| step.set.len());
         self.steps.iter().map(of).max().unwrap_or(0)
+    }
+
+    /// May a step come at the instant at which inputs of the one before it still change?
+    pub(super) fn may_meet(&self, step: usize) -> bool {
+        let before = step.checked_sub(1).map(|before| &self.steps[before]).filter(|before| before.moves_on());
+        before.is_some_and(|before| match self.steps[step].place {
+            PlantPlace::After(ticks) => ticks.min <= before.moves_for(),
+            PlantPlace::At(_) => true,
+            PlantPlace::Rest(_) | PlantPlace::When { .. } => false,
+        })
     }
 
     /// The net of an input that the last of so many steps sets.

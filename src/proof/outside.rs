@@ -183,7 +183,8 @@ impl Plant {
     }
 
     /// The windows of a question about this one: from its step to the next that surely begins another, since it changes an
-    /// input of the plant and cannot come at the instant of the one before it.
+    /// input of the plant and can neither come at the instant of the one before it nor at that of its last input change: an
+    /// input that changes there and is set back is seen to stay.
     pub(super) fn stretch(&self, start: u32) -> Stretch {
         let count = self.steps.len() as u32;
         let listed = start <= count;
@@ -196,7 +197,7 @@ impl Plant {
             let changes = step.set.iter().any(|(net, value)| self.core[*net as usize] && moves(*net, *value));
             step.set.iter().for_each(|(net, value)| inputs[*net as usize] = *value);
             let window = number as u32 + 1;
-            if listed && window > start && changes && !self.may_coincide(number) {
+            if listed && window > start && changes && !self.may_coincide(number) && !self.may_meet(number) {
                 end = end.or(Some(window));
             }
             if !changes {
