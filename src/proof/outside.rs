@@ -193,11 +193,12 @@ impl Plant {
         for (number, step) in self.steps.iter().enumerate() {
             // a contact that surely bounces moves, whatever it leads to
             let bounces = step.bounce.is_some_and(|bounce| bounce.pairs.0 > 0);
-            let moves = |net: u32, value: bool| bounces || inputs[net as usize] != value;
+            let meets = |net: u32| self.may_meet(number) && self.steps[number - 1].set.iter().any(|set| set.0 == net);
+            let moves = |net: u32, value: bool| bounces || inputs[net as usize] != value && !meets(net);
             let changes = step.set.iter().any(|(net, value)| self.core[*net as usize] && moves(*net, *value));
             step.set.iter().for_each(|(net, value)| inputs[*net as usize] = *value);
             let window = number as u32 + 1;
-            if listed && window > start && changes && !self.may_coincide(number) && !self.may_meet(number) {
+            if listed && window > start && changes && !self.may_coincide(number) {
                 end = end.or(Some(window));
             }
             if !changes {
