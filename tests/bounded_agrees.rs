@@ -598,7 +598,8 @@ fn scaled(count: u64) -> u64 {
 
 #[test]
 fn steps_at_their_times() {
-    let kind = Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: false };
+    let kind =
+        Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: false };
     let met = random_cases(31, scaled(10_000), kind);
     assert!(met.cut > 20, "{met:?}");
 }
@@ -620,7 +621,8 @@ fn wires() {
 /// A clock beside one step, at any time, after rest or with skew.
 #[test]
 fn clocks() {
-    let kind = Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: true, bounces: false };
+    let kind =
+        Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: true, bounces: false };
     let met = random_cases(38, scaled(800), kind);
     assert!(met.cut > 20, "{met:?}");
     random_cases(39, scaled(200), Kind { wires: 0.4, power_up: true, ..kind });
@@ -644,7 +646,8 @@ fn any_start() {
 /// Steps that wait for a pattern, with and without an end of the wait.
 #[test]
 fn patterns() {
-    let kind = Kind { wires: 0.0, timed: true, power_up: false, waits: true, ties: false, clock: false, bounces: false };
+    let kind =
+        Kind { wires: 0.0, timed: true, power_up: false, waits: true, ties: false, clock: false, bounces: false };
     let met = random_cases(44, scaled(3000), kind);
     assert!(met.waited * 5 > met.cases && met.missed * 10 > met.cases, "{met:?}");
     random_cases(45, scaled(800), Kind { wires: 0.4, power_up: true, ..kind });
@@ -656,7 +659,8 @@ fn patterns() {
 /// Contacts that bounce, before every kind of step.
 #[test]
 fn bounces() {
-    let kind = Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: true };
+    let kind =
+        Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: true };
     let met = random_cases(61, scaled(600), kind);
     assert!(met.bounced * 2 > met.cases, "{met:?}");
     random_cases(62, scaled(200), Kind { timed: false, ..kind });

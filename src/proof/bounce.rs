@@ -91,13 +91,8 @@ pub(super) fn toggles(plant: &Plant, key: Key<'_>, bounce: PlantBounce, since: u
     let most = bounce.lasting.max;
     info.limits.push((since, if may_end(plant, key) { zone::at_most(most) } else { zone::below(most) }));
     for (entry, _, at_new) in bouncing(plant, key) {
-        let agent = |last: bool, min: i64| Agent {
-            mover: Mover::Toggle(entry, last),
-            row: since,
-            min,
-            steps: 0,
-            edges: 0,
-        };
+        let agent =
+            |last: bool, min: i64| Agent { mover: Mover::Toggle(entry, last), row: since, min, steps: 0, edges: 0 };
         if !at_new {
             info.agents.push(agent(true, bounce.lasting.min));
         }

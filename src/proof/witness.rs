@@ -162,7 +162,8 @@ fn bounces_of<'a>(
     instance: &'a mut Instance,
 ) -> impl Iterator<Item = (usize, &'a mut Vec<Span>)> {
     let nets: Vec<_> = scenario.stimulus.steps[step].set.iter().map(|(net, _)| *net).collect();
-    let entry = move |at: usize| plant.steps[step].set.iter().position(|(net, _)| plant.nets[*net as usize] == nets[at]);
+    let entry =
+        move |at: usize| plant.steps[step].set.iter().position(|(net, _)| plant.nets[*net as usize] == nets[at]);
     instance.bounces[step].iter_mut().enumerate().filter_map(move |(at, toggles)| Some((entry(at)?, toggles)))
 }
 
