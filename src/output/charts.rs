@@ -7,6 +7,7 @@ use plotters::style::text_anchor::{HPos, Pos, VPos};
 use crate::output::ink;
 use crate::output::measure::{cut_end, width};
 use crate::output::words;
+use crate::proof::Proof;
 use crate::scenario::Scenario;
 use crate::sweep::{Settling, SweepReport, WindowReport};
 use crate::time::{Span, Unit};
@@ -29,6 +30,11 @@ pub(super) type Drawn = Result<(), DrawingAreaErrorKind<std::io::Error>>;
 /// median, 99th percentile and the limit from the rules. [`tables::settling`](crate::output::tables::settling) has the
 /// numbers.
 pub fn settling(scenario: &Scenario, report: &SweepReport) -> String {
+    settling_with(scenario, report, None)
+}
+
+/// The same, with a line at the greatest settling time that a proof has for each step.
+pub fn settling_with(scenario: &Scenario, report: &SweepReport, proof: Option<&Proof>) -> String {
     let panels: Vec<(&WindowReport, &Settling)> = report
         .windows
         .iter()
@@ -41,9 +47,9 @@ pub fn settling(scenario: &Scenario, report: &SweepReport) -> String {
     let mut svg = String::new();
     {
         let root = SVGBackend::with_string(&mut svg, size).into_drawing_area();
-        draw(&root, scenario, report, shown, &panels[shown.len()..]).expect("drawing into memory");
+        draw(&root, scenario, report, proof, shown, &panels[shown.len()..]).expect("drawing into memory");
     }
-    let alternative = alternative(scenario, shown);
+    let alternative = alternative(scenario, shown, proof);
     svg.replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
 }
 
@@ -51,6 +57,7 @@ fn draw(
     root: &Area<'_>,
     scenario: &Scenario,
     report: &SweepReport,
+    proof: Option<&Proof>,
     shown: &[(&WindowReport, &Settling)],
     left_out: &[(&WindowReport, &Settling)],
 ) -> Drawn {
@@ -64,7 +71,7 @@ fn draw(
         let (column, row) = (i as u32 % 2, i as u32 / 2);
         let corner = ((column * PANEL.0) as i32, (HEAD + row * PANEL.1) as i32);
         let area = root.clone().shrink(corner, PANEL);
-        panel(&area, scenario, window, settling)?;
+        panel(&area, scenario, proof, window, settling)?;
     }
     if shown.is_empty() {
         root.draw(&Text::new("No window settled.", (12, HEAD as i32), small()))?;
@@ -80,8 +87,15 @@ fn draw(
 }
 
 /// One histogram.
-fn panel(area: &Area<'_>, scenario: &Scenario, window: &WindowReport, settling: &Settling) -> Drawn {
-    let marks = marks(scenario, window, settling);
+fn panel(
+    area: &Area<'_>,
+    scenario: &Scenario,
+    proof: Option<&Proof>,
+    window: &WindowReport,
+    settling: &Settling,
+) -> Drawn {
+    let mut marks = marks(scenario, window, settling);
+    marks.extend(proved(proof, window.moment).map(|(at, label)| Mark { at, label, ink: ink::REST }));
     let longest = marks.iter().map(|mark| mark.at).chain(settling.bars.iter().map(|bar| bar.1)).max();
     let unit = fitting(longest.unwrap_or_default(), scenario.unit);
     let value = |span: Span| span.fs() as f64 / unit.femtoseconds() as f64;
@@ -200,6 +214,15 @@ fn marks(scenario: &Scenario, window: &WindowReport, settling: &Settling) -> Vec
     marks
 }
 
+/// The greatest settling time that is proved for a moment, and its label.
+fn proved(proof: Option<&Proof>, moment: u32) -> Option<(Span, String)> {
+    let window = proof?.windows.iter().find(|window| window.moment == moment)?;
+    let (_, most) = window.settling?;
+    let below = if window.settling_below { "below " } else { "" };
+    let ties = if window.settling_but_for_ties { ", but for ties" } else { "" };
+    Some((most, format!("proved bound {below}{}{ties}", most.rounded())))
+}
+
 /// The settling limit of a moment, if the rules have one.
 fn limit(scenario: &Scenario, moment: u32) -> Option<Span> {
     let moment = scenario.stimulus.moments.get(moment as usize)?;
@@ -227,10 +250,11 @@ pub(super) fn rgb(ink: &str) -> RGBColor {
 }
 
 /// The chart in words, fit for an attribute.
-fn alternative(scenario: &Scenario, shown: &[(&WindowReport, &Settling)]) -> String {
+fn alternative(scenario: &Scenario, shown: &[(&WindowReport, &Settling)], proof: Option<&Proof>) -> String {
     let each = shown.iter().map(|(window, settling)| {
         let step = words::step(scenario, Some(window.moment)).unwrap_or_default();
-        format!("{step}: median {}, 99th percentile {}", settling.median.rounded(), settling.p99.rounded())
+        let bound = proved(proof, window.moment).map_or_else(String::new, |(_, label)| format!(", {label}"));
+        format!("{step}: median {}, 99th percentile {}{bound}", settling.median.rounded(), settling.p99.rounded())
     });
     let text = format!("Settling time. {}.", each.collect::<Vec<_>>().join("; "));
     let markup = maud::html! { (words::clean(&text)) };
