@@ -23,7 +23,7 @@ use stillgate::logic::Bits;
 use stillgate::output::flow_map::{self, Map};
 use stillgate::output::text::{self, Page, Style};
 use stillgate::output::waves::{self, Picture};
-use stillgate::output::{bundle, charts, flow_tables, json, tables};
+use stillgate::output::{bundle, charts, flow_tables, json, shares, tables};
 use stillgate::review::{RunReport, StatesReport};
 use stillgate::scenario::{Plot, RefNet, Reference, Scenario};
 use stillgate::statics::{Change, Race};
@@ -298,11 +298,15 @@ fn the_files_of_a_review() {
         "waves-glitch-open-lower-together.csv",
         "waves-glitch-open-lower-together.vcd",
         "causes.csv",
+        "sensitivity.svg",
+        "sensitivity.csv",
         "case-never-open-upper-1-open-lower-1-together.toml",
         "case-critical-race-together.toml",
         "refuted-1.toml",
         "settling.svg",
         "settling.csv",
+        "shares.svg",
+        "shares.csv",
         "outcomes.csv",
         "findings.csv",
         "rules.csv",
@@ -402,6 +406,18 @@ fn every_picture_is_well_formed() {
     }
     let scenario = lock();
     well_formed(&charts::settling(&scenario, &results::sweep(&scenario, &Asked::of(&scenario))));
+}
+
+#[test]
+fn shares_chart() {
+    let scenario = lock();
+    let asked = Asked::of(&scenario);
+    let report = results::sweep(&scenario, &asked);
+    let svg = shares::svg(&scenario, &asked, &report);
+    well_formed(&svg);
+    well_formed(&shares::svg(&scenario, &asked, &results::sweep_of_nothing(&scenario)));
+    golden("shares.svg", &svg);
+    golden("shares.csv", &shares::csv(&scenario, &asked, &report));
 }
 
 #[test]

@@ -24,6 +24,8 @@ mod limit_words;
 mod measure;
 mod races;
 mod search;
+pub mod sensitivity;
+pub mod shares;
 pub mod stream;
 pub mod tables;
 pub mod text;
