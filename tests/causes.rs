@@ -10,6 +10,7 @@ use stillgate::engine::{End, Program};
 use stillgate::findings::{Asked, Kind, Subject};
 use stillgate::instance::{Instance, Quantities, Target, Which};
 use stillgate::output::bundle;
+use stillgate::output::text::Page;
 use stillgate::reader::read_instance;
 use stillgate::review::{self, Away, Needs, Review, Untold, Why, run_one};
 use stillgate::scenario::Scenario;
@@ -251,7 +252,7 @@ fn firings_stay_as_they_were() {
     assert!(needs.typical_shows_it() && needs.kept.firings && !needs.kept.exact, "{needs:?}");
     let (subject, _) = causes(&review).next().unwrap();
     block.is_minimal(needs, subject, &review.sweep, "firings");
-    let bundle = bundle::of_review(&block.scenario, &review);
+    let bundle = bundle::of_review(&block.scenario, &review, &Page::default());
     let file = bundle.files.iter().find(|file| file.name.starts_with("case-glitch")).expect("a case");
     let read = read_instance(std::str::from_utf8(&file.bytes).unwrap(), "case", &block.scenario).unwrap();
     assert_eq!(read, *needs.case);
@@ -322,7 +323,11 @@ fn any_number_of_threads_says_the_same() {
         let block = Block::demonstration(name, samples);
         let [one, two] = [1, 2].map(|threads| block.review(threads));
         assert_eq!(format!("{:?}", one.why), format!("{:?}", two.why), "{name}");
-        assert_eq!(bundle::of_review(&block.scenario, &one), bundle::of_review(&block.scenario, &two), "{name}");
+        assert_eq!(
+            bundle::of_review(&block.scenario, &one, &Page::default()),
+            bundle::of_review(&block.scenario, &two, &Page::default()),
+            "{name}"
+        );
     }
 }
 

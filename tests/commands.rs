@@ -72,10 +72,11 @@ fn the_main_job_on_the_demonstration_leaves_its_files() {
 #[test]
 fn same_bytes_for_one_and_two_threads_and_on_a_second_run() {
     for scenario in ["interlock", "contactors", "clock-switch", "power-up", "horn"] {
-        let folder = tempfile::tempdir().unwrap();
         let path = project(&format!("scenarios/{scenario}.toml"));
         let mut all = Vec::new();
-        for (out, threads) in [("a", "1"), ("b", "2"), ("c", "1")] {
+        for threads in ["1", "2", "1"] {
+            // the page has commands that name the folder
+            let (folder, out) = (tempfile::tempdir().unwrap(), "out");
             let arguments = ["review", &path, "--samples", "700", "--threads", threads, "--out", out, "--json"];
             let output = stillgate(folder.path(), &arguments);
             assert!(output.status.success(), "{scenario}: {}", text(&output.stderr));

@@ -23,7 +23,7 @@ use stillgate::logic::Bits;
 use stillgate::output::flow_map::{self, Map};
 use stillgate::output::text::{self, Page, Style};
 use stillgate::output::waves::{self, Picture};
-use stillgate::output::{bundle, charts, flow_tables, json, shares, tables};
+use stillgate::output::{bundle, charts, flow_tables, json, sensitivity, shares, tables};
 use stillgate::review::{RunReport, StatesReport};
 use stillgate::scenario::{Plot, RefNet, Reference, Scenario};
 use stillgate::statics::{Change, Race};
@@ -281,10 +281,11 @@ fn nets_without_a_sheet_are_named() {
 fn the_files_of_a_review() {
     let scenario = lock();
     let review = results::review(&scenario);
-    let bundle = bundle::of_review(&scenario, &review);
+    let bundle = bundle::of_review(&scenario, &review, &Page::default());
     let names: Vec<&str> = bundle.files.iter().map(|file| file.name.as_str()).collect();
     let wanted = [
         "result.json",
+        "report.html",
         "waves-typical.svg",
         "waves-typical.csv",
         "waves-typical.vcd",
@@ -316,7 +317,7 @@ fn the_files_of_a_review() {
     ];
     assert_eq!(names, wanted);
     assert!(bundle.notes[0].starts_with("3 of 6 findings have a picture"), "{:?}", bundle.notes);
-    assert_eq!(bundle, bundle::of_review(&scenario, &review), "the same bytes again");
+    assert_eq!(bundle, bundle::of_review(&scenario, &review, &Page::default()), "the same bytes again");
 }
 
 /// The map of a table with one state variable.
@@ -445,9 +446,16 @@ fn lists() {
     let review = results::review(&scenario);
     golden("outcomes.csv", &tables::outcomes(&scenario, &review.sweep));
     golden("findings.csv", &tables::findings(&scenario, &review.asked, &review.sweep));
-    let bundle = bundle::of_review(&scenario, &review);
+    let bundle = bundle::of_review(&scenario, &review, &Page::default());
     let causes = bundle.files.iter().find(|file| file.name == "causes.csv").unwrap();
     golden("causes.csv", std::str::from_utf8(&causes.bytes).unwrap());
+    let svg = sensitivity::svg(&scenario, &review).unwrap();
+    well_formed(&svg);
+    golden("sensitivity.svg", &svg);
+    golden("sensitivity.csv", &sensitivity::csv(&scenario, &review).unwrap());
+    let proved = charts::settling_with(&scenario, &review.sweep, review.proof.as_ref());
+    well_formed(&proved);
+    golden("settling-proved.svg", &proved);
     golden("rules.csv", &tables::rules(&scenario, &review.sweep, None));
     golden("states.csv", &flow_tables::states(&scenario, &review.states));
     golden("transitions.csv", &flow_tables::transitions(&scenario, &review.states));

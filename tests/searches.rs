@@ -107,7 +107,7 @@ fn two_gates_open_at_once_in_one_case_of_a_million() {
     let page = text::review(&scenario, &review, &Page { scenario: Some("row.toml"), folder: "out", ..Page::default() });
     assert!(page.contains("stillgate run row.toml --delays out/worst-1.toml"), "{page}");
     assert!(page.contains("worst met, no bound"), "{page}");
-    let files = bundle::of_review(&scenario, &review).files;
+    let files = bundle::of_review(&scenario, &review, &Page::default()).files;
     let file = files.iter().find(|file| file.name == "worst-1.toml").unwrap();
     assert_eq!(file.bytes, write_instance(&case, &scenario).into_bytes());
     assert!(files.iter().any(|file| file.name.starts_with("waves-never-")), "a picture of it");

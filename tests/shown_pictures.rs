@@ -9,6 +9,7 @@ use std::path::{Path, PathBuf};
 use stillgate::control::Control;
 use stillgate::engine::Program;
 use stillgate::output::bundle;
+use stillgate::output::text::Page;
 use stillgate::review;
 
 /// Draws of each demonstration: bands and failing cases come of them.
@@ -30,7 +31,7 @@ fn pictures(name: &str, text: &str) -> Vec<(String, String, String)> {
     scenario.plan.samples = SAMPLES;
     let program = Program::new(&scenario, &Control::default()).unwrap();
     let review = review::review(&scenario, &program, 1, &Control::default()).unwrap();
-    let bundle = bundle::of_review(&scenario, &review);
+    let bundle = bundle::of_review(&scenario, &review, &Page::default());
     let file = |name: &str| {
         let file = bundle.files.iter().find(|file| file.name == name)?;
         Some(String::from_utf8(file.bytes.clone()).unwrap())

@@ -25,15 +25,15 @@ pub fn run(arguments: &Reviewing) -> Result<ExitCode, Failure> {
     if control.cancelled() && review.sweep.samples == 0 {
         return Err(Failure::Interrupted);
     }
+    let (called, options) = (called(input), options(&overrides(&arguments.draws)));
+    let into = folder.display().to_string();
+    let page = Page { folder: &into, ..page(called.as_deref(), &options) };
     if input.json {
         say(&json::review(&scenario, &review))?;
     } else if !input.quiet {
-        let (called, options) = (called(input), options(&overrides(&arguments.draws)));
-        let into = folder.display().to_string();
-        let page = Page { folder: &into, ..page(called.as_deref(), &options) };
         say(&text::review(&scenario, &review, &page))?;
     }
-    let bundle = bundle::of_review(&scenario, &review);
+    let bundle = bundle::of_review(&scenario, &review, &page);
     bundle::clear_pictures(&folder, &bundle);
     write(&bundle, &folder, input.quiet || input.json)?;
     if control.cancelled() {

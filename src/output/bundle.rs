@@ -6,23 +6,22 @@ use std::io;
 use std::path::{Path, PathBuf};
 
 use crate::circuit::NetId;
-use crate::findings::{Asked, Kind, Subject};
+use crate::findings::{Asked, Kind};
 use crate::output::flow_map::{self, Map};
 use crate::output::instance::write_instance;
+pub use crate::output::pictures::MOST_PICTURES;
 use crate::output::search::case_files;
+use crate::output::text::Page;
 use crate::output::waves::{self, Nets, Picture};
-use crate::output::{causes, charts, convergence, dump, flow_tables, json, sensitivity, shares, tables, words};
+use crate::output::{
+    causes, charts, convergence, dump, flow_tables, json, page, pictures, sensitivity, shares, tables, words,
+};
 use crate::proof::Proof;
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
 use crate::search::SearchReport;
 use crate::sweep::SweepReport;
-use crate::time::Time;
 
-/// Most findings that get a picture of their failing case.
-pub const MOST_PICTURES: usize = 12;
-/// Of runs with more windows than this only what is around the finding is shown.
-const WHOLE_RUN: usize = 8;
 /// Most cells of a waveform table.
 const MOST_CELLS: u64 = 20_000_000;
 /// Longest part of a file name.
@@ -200,38 +199,23 @@ fn of_searched(
     bundle
 }
 
-/// The files of a review: `result.json`, `waves-typical`, a `waves-<kind>-<net or pattern>-<step>` for each of the worst
+/// The files of a review: `result.json`, `report.html` (see [`page`]), `waves-typical`, a `waves-<kind>-<net or pattern>-<step>` for each of the worst
 /// findings whose failing case was run (at most [`MOST_PICTURES`]), `causes.csv`, `sensitivity.svg` and `.csv`, and a `case-<kind>-<net or
 /// pattern>-<step>.toml` for each finding that was looked into, `worst-<n>.toml` for the cases that only the directed
 /// search met, `refuted-<n>.toml` for those that refute a claim of the proof, the files of the sweep and of the flow table.
-pub fn of_review(scenario: &Scenario, review: &Review) -> Bundle {
+/// Commands that replay a case are those of `told`.
+pub fn of_review(scenario: &Scenario, review: &Review, told: &Page<'_>) -> Bundle {
     let mut bundle = Bundle::default();
     bundle.add("result.json", json::review(scenario, review));
-    if let Some(run) = &review.typical {
-        let picture = Picture::of_run(scenario, &review.asked, run, "waves-typical").with_bands(&review.sweep);
-        bundle.add_waves("waves-typical", &picture, run);
-        bundle.note_dump("waves-typical", run);
+    bundle.add("report.html", page::report(scenario, review, told));
+    if let Some((run, picture)) = pictures::typical(scenario, review) {
+        bundle.add_waves(pictures::TYPICAL, &picture, run);
+        bundle.note_dump(pictures::TYPICAL, run);
     }
-    let mut stems = BTreeSet::from(["waves-typical".to_string()]);
-    let mut shown: Vec<&(usize, RunReport)> =
-        review.shown.iter().filter(|(finding, _)| *finding < review.sweep.findings.len()).collect();
-    shown.sort_by_key(|it| it.0);
-    shown.truncate(MOST_PICTURES);
-    for (finding, run) in &shown {
-        let subject = &review.sweep.findings[*finding].subject;
-        let stem = unique(causes::stem(scenario, &review.asked, subject, "waves"), &mut stems);
-        let why = review.why.get(*finding).and_then(Option::as_ref);
-        let mut picture = Picture::of_run(scenario, &review.asked, run, &stem);
-        picture.race = why.and_then(|why| why.race.clone());
-        if picture.nets == Nets::All {
-            picture.nets = Nets::Telling;
-        }
-        picture.range = picture.range.or_else(|| around(subject, run));
-        if let Some(typical) = review.typical.as_ref().filter(|typical| typical.which != run.which) {
-            picture = picture.against(typical);
-        }
-        bundle.add_waves(&stem, &picture, run);
-        bundle.note_dump(&stem, run);
+    let shown = pictures::shown(scenario, review);
+    for it in &shown {
+        bundle.add_waves(&it.stem, &it.picture, it.run);
+        bundle.note_dump(&it.stem, it.run);
     }
     let all = review.sweep.findings.len();
     if shown.len() < all {
@@ -279,22 +263,6 @@ pub fn of_states(scenario: &Scenario, report: &StatesReport) -> Bundle {
     bundle.add("states.csv", flow_tables::states(scenario, report));
     bundle.add("transitions.csv", flow_tables::transitions(scenario, report));
     bundle
-}
-
-/// The stretch of a long run in which a finding lies; `None` for a short run.
-fn around(subject: &Subject, run: &RunReport) -> Option<(Time, Time)> {
-    let windows = &run.trace.windows;
-    if windows.len() <= WHOLE_RUN {
-        return None;
-    }
-    let window = windows.iter().find(|window| Some(window.moment) == subject.moment)?;
-    let place = run.facts.iter().find(|fact| fact.subject == *subject).and_then(|fact| fact.place);
-    let (from, to) = place.unwrap_or((window.start, window.stop));
-    let (from, to) = (from.min(window.start), to.max(window.stop));
-    // something of before and after, so that edges at both ends can be seen
-    let length = to.since(from).fs();
-    let before = Time::from_fs(from.fs().saturating_sub(length / 3));
-    Some((before, Time::from_fs(to.fs() + length / 12).min(run.trace.end.max(to))))
 }
 
 /// Letters, digits and single dashes; everything else becomes a dash.

@@ -7,6 +7,7 @@
 mod assumptions;
 pub mod bundle;
 mod causes;
+mod cautions;
 pub mod charts;
 pub mod convergence;
 mod deciding;
@@ -22,6 +23,8 @@ pub mod limit_map;
 pub mod limit_tables;
 mod limit_words;
 mod measure;
+pub mod page;
+mod pictures;
 mod races;
 mod search;
 pub mod sensitivity;

@@ -21,7 +21,7 @@ mod tests;
 mod tracks;
 
 use crate::circuit::NetId;
-use crate::flow::Flow;
+use crate::flow::{Flow, StateNumber};
 use crate::scenario::Scenario;
 
 /// Most columns of a whole map; above, only what the steps touch is drawn.
@@ -49,4 +49,30 @@ pub struct Map<'a> {
 /// A table that is too large is cut to what the steps touch, and to the first that fit; the caption says so.
 pub fn svg(map: &Map<'_>) -> String {
     draw::svg(map, &frame::Frame::new(map))
+}
+
+/// Where something is on a map, pixels.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Area {
+    /// Left edge.
+    pub x: f64,
+    /// Top.
+    pub y: f64,
+    /// Width.
+    pub width: f64,
+    /// Height.
+    pub height: f64,
+}
+
+/// The map, its width and height, and where the box of each state is that it shows, so that something can be drawn over it.
+pub fn with_boxes(map: &Map<'_>) -> (String, (f64, f64), Vec<(StateNumber, Area)>) {
+    let frame = frame::Frame::new(map);
+    let boxes = frame.blocks.iter().filter_map(|block| match block.place {
+        arrows::Place::State(number) => {
+            Some((number, Area { x: block.x, y: block.y, width: frame.wide, height: block.height }))
+        }
+        _ => None,
+    });
+    let boxes = boxes.collect();
+    (draw::svg(map, &frame), (frame.width, frame.height), boxes)
 }

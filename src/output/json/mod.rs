@@ -31,7 +31,7 @@ pub use states::states;
 pub use sweep::sweep;
 
 /// The format number of every document.
-const FORMAT: u32 = 1;
+pub(super) const FORMAT: u32 = 1;
 
 /// A document as text. Serialising borrowed names and numbers into memory does not fail.
 fn document(body: &impl serde::Serialize) -> String {

@@ -6,7 +6,7 @@ use super::paper::{Paper, Table, Tone};
 use crate::circuit::NetId;
 use crate::delay::DelayRange;
 use crate::output::words;
-use crate::scenario::{MomentKind, Place, Scenario};
+use crate::scenario::{MomentKind, Place, Scenario, Step};
 
 /// Most names in a list.
 const NAMES: usize = 16;
@@ -82,15 +82,7 @@ fn steps(paper: &mut Paper, scenario: &Scenario) {
             }
             MomentKind::Step(step) => {
                 let step = &stimulus.steps[step as usize];
-                let sets =
-                    step.set.iter().map(|(net, value)| format!("{}={}", words::net(scenario, *net), u8::from(*value)));
-                let mut sets = sets.collect::<Vec<_>>().join(" ");
-                if let Some(bounce) = &step.bounce {
-                    let (least, most) = bounce.pulses;
-                    let pairs = if least == most { least.to_string() } else { format!("{least} to {most}") };
-                    sets += &format!(", bouncing {pairs} times within {}", range(scenario, &bounce.lasting));
-                }
-                (place(scenario, &step.place), sets)
+                (place(scenario, &step.place), sets(scenario, step))
             }
         };
         table.row(Tone::Plain, vec![moment.label.clone(), when, sets]);
@@ -99,8 +91,20 @@ fn steps(paper: &mut Paper, scenario: &Scenario) {
     super::more(paper, stimulus.moments.len().saturating_sub(ROWS), "check --json");
 }
 
+/// What a step sets: `call=1 permit=0`, and how its contacts bounce.
+pub(in crate::output) fn sets(scenario: &Scenario, step: &Step) -> String {
+    let sets = step.set.iter().map(|(net, value)| format!("{}={}", words::net(scenario, *net), u8::from(*value)));
+    let mut sets = sets.collect::<Vec<_>>().join(" ");
+    if let Some(bounce) = &step.bounce {
+        let (least, most) = bounce.pulses;
+        let pairs = if least == most { least.to_string() } else { format!("{least} to {most}") };
+        sets += &format!(", bouncing {pairs} times within {}", range(scenario, &bounce.lasting));
+    }
+    sets
+}
+
 /// A range of times: `100 ns`, `100 to 140 ns`.
-fn range(scenario: &Scenario, range: &DelayRange) -> String {
+pub(in crate::output) fn range(scenario: &Scenario, range: &DelayRange) -> String {
     let unit = scenario.unit;
     if range.is_exact() {
         format!("{} {unit}", range.min.decimal(unit))
@@ -110,7 +114,7 @@ fn range(scenario: &Scenario, range: &DelayRange) -> String {
 }
 
 /// When a step comes: `at 100 ns`, `100 to 140 ns after the step before`.
-fn place(scenario: &Scenario, place: &Place) -> String {
+pub(in crate::output) fn place(scenario: &Scenario, place: &Place) -> String {
     let unit = scenario.unit;
     let range = |it: &DelayRange| range(scenario, it);
     match place {

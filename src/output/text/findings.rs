@@ -6,9 +6,9 @@ use super::search::Searching;
 use super::why::{Causes, Told};
 use crate::findings::{Against, Asked, Kind, RacePair, RuleKey, Subject};
 use crate::instance::Which;
-use crate::output::search::file_of;
+use crate::output::search::{CaseFile, file_of, rare_file};
 use crate::output::{races, words};
-use crate::review::{Why, departure_words, without_draws};
+use crate::review::{Review, Why, departure_words, without_draws};
 use crate::scenario::{Scenario, Vary};
 use crate::sweep::{Cause, Finding, RuleReport, SweepReport, Tie, Worst};
 
@@ -70,7 +70,7 @@ pub(super) fn worst(kind: Kind, worst: Worst) -> String {
 }
 
 /// How often, how surely, how bad.
-fn figures(scenario: &Scenario, finding: &Finding) -> String {
+pub(in crate::output) fn figures(scenario: &Scenario, finding: &Finding) -> String {
     let mut text = match finding.case.as_deref().filter(|_| finding.count == 0) {
         Some(case) => format!("in no draw, {}", without_draws(finding, case)),
         None => format!("{} of {} draws", words::count(finding.count), words::count(finding.of)),
@@ -107,6 +107,22 @@ fn figures(scenario: &Scenario, finding: &Finding) -> String {
     text
 }
 
+/// The command that replays the case that shows a finding worst; `files` are those of the directed search.
+pub(in crate::output) fn replay(
+    page: &Page<'_>,
+    review: &Review,
+    files: &[CaseFile<'_>],
+    finding: &Finding,
+) -> Option<String> {
+    if let Some(file) = rare_file(review, finding) {
+        return Some(page.replay_file(&file));
+    }
+    match finding.shown_by()? {
+        Which::Given(_) => file_of(files, finding.subject.question).map(|file| page.replay_file(file)),
+        case => Some(page.replay(&case, None)),
+    }
+}
+
 /// Findings of one kind, rule and net after several steps: the worst, and how many more.
 struct Group<'a> {
     worst: &'a Finding,
@@ -116,7 +132,7 @@ struct Group<'a> {
 }
 
 /// What departed from the reference: `from call=1 permit=1 to permit=0; the reference allows permit=1`.
-pub(super) fn departure(scenario: &Scenario, against: &Against) -> String {
+pub(in crate::output) fn departure(scenario: &Scenario, against: &Against) -> String {
     let words = departure_words(scenario, against, false);
     let before = words.before.map_or_else(String::new, |before| format!("from {before} "));
     format!("{before}to {}; the reference allows {}", words.reached, words.allowed)

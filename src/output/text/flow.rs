@@ -19,6 +19,7 @@ use crate::statics::{Change, Race};
 const NOTES: usize = 3;
 /// Most rows of the flow table.
 const ROWS: usize = 18;
+const ROWS_OF_A_PAGE: usize = 64;
 /// Most nets of one column of digits.
 const DIGITS: usize = 12;
 /// Most names of nets in a list.
@@ -27,6 +28,7 @@ const NAMES: usize = 8;
 const LISTED: usize = 4;
 /// Most changes that no step makes.
 const GAPS: usize = 6;
+const GAPS_OF_A_PAGE: usize = 40;
 /// Most states or groups in a list.
 const STATES: usize = 8;
 /// Most names of nets in the short form.
@@ -56,7 +58,7 @@ pub(super) fn table(paper: &mut Paper, scenario: &Scenario, report: &StatesRepor
     for input in scenario.circuit.inputs() {
         table = table.word(words::net(scenario, input));
     }
-    let small = all.states.len() <= ROWS && nets.iter().all(|it| it.1.len() <= DIGITS);
+    let small = all.states.len() <= paper.most(ROWS, ROWS_OF_A_PAGE) && nets.iter().all(|it| it.1.len() <= DIGITS);
     if small {
         for number in 0..all.states.len() as StateNumber {
             table.row(Tone::Plain, row(scenario, flow, &nets, number));
@@ -308,7 +310,7 @@ fn left(all: usize, told: usize, place: &str) -> String {
 }
 
 /// How many single-input changes the steps make.
-pub(super) fn covered(flow: &Flow) -> String {
+pub(in crate::output) fn covered(flow: &Flow) -> String {
     let coverage = &flow.coverage;
     let (exercised, all) = (words::count(coverage.exercised), words::many(coverage.all, "single-input change"));
     let perhaps = match coverage.perhaps.len() {
@@ -329,13 +331,14 @@ pub(super) fn reading(paper: &mut Paper, scenario: &Scenario, flow: &Flow) {
     }
     let missing = &flow.coverage.missing;
     paper.heading("Coverage, and the circuit as an automaton");
+    let most = paper.most(GAPS, GAPS_OF_A_PAGE);
     let mut text = covered(flow);
     if missing.is_empty() {
         text += ".";
     } else {
         let gap = |(number, input): &(StateNumber, NetId)| flow_words::single(scenario, &flow.table, *number, *input);
-        let told: Vec<String> = missing.iter().take(GAPS).map(gap).collect();
-        text += &format!("; not: {}{}.", told.join(", "), left(missing.len(), GAPS, "thin arrows of states.svg"));
+        let told: Vec<String> = missing.iter().take(most).map(gap).collect();
+        text += &format!("; not: {}{}.", told.join(", "), left(missing.len(), most, "thin arrows of states.svg"));
     }
     paper.item(if missing.is_empty() { Tone::Plain } else { Tone::Unsure }, &text);
     let automaton = &flow.automaton;

@@ -3,11 +3,13 @@
 //! Lists are shortened, and say by how much and which file has the rest. Colour, where the caller wants it, is only added
 //! to words that say the same. A text about a sweep never says more than "no failure found".
 
+mod blocks;
 mod challenge;
 mod check;
 mod conditions;
 mod findings;
 mod flow;
+pub(super) mod for_page;
 mod limit;
 mod notes;
 mod paper;
@@ -25,16 +27,23 @@ mod sweep;
 mod ties;
 mod why;
 
+pub(super) use blocks::Block;
 pub use check::check;
-pub(super) use findings::about;
+pub(super) use check::{place, range, sets};
+pub(super) use findings::{about, departure, figures, replay};
+pub(super) use flow::covered;
 pub use limit::{limit, limit_map};
 pub use paper::Style;
+pub(super) use paper::Tone;
 pub use part::part;
 pub use prove::prove;
+pub(super) use review::draws;
 pub use review::review;
+pub(super) use rules::about as about_rule;
 pub use run::run;
 pub use states::states;
 pub use sweep::sweep;
+pub(super) use why::{needs, pull};
 
 use crate::instance::Which;
 
@@ -65,7 +74,7 @@ impl Page<'_> {
     }
 
     /// The command that replays a case, under a condition if one is named.
-    fn replay(&self, case: &Which, condition: Option<&str>) -> String {
+    pub(super) fn replay(&self, case: &Which, condition: Option<&str>) -> String {
         let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
         let condition = condition.map_or_else(String::new, |name| format!(" --condition {}", in_a_shell(name)));
         format!("stillgate run{scenario}{}{condition} --delays {}", self.options, case.key())
@@ -74,7 +83,7 @@ impl Page<'_> {
 
 impl Page<'_> {
     /// The command that runs the case in a file of this review.
-    fn replay_file(&self, file: &str) -> String {
+    pub(super) fn replay_file(&self, file: &str) -> String {
         let scenario = self.scenario.map_or_else(String::new, |name| format!(" {}", in_a_shell(name)));
         let path = std::path::Path::new(self.folder).join(file);
         format!("stillgate run{scenario} --delays {}", in_a_shell(&path.display().to_string()))

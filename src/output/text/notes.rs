@@ -2,6 +2,7 @@
 
 use super::paper::{Paper, Tone};
 use crate::output::assumptions::assumptions;
+use crate::output::cautions::cautions;
 use crate::scenario::Scenario;
 
 /// Most names of gates in one assumption.
@@ -25,22 +26,4 @@ pub(super) fn notes(paper: &mut Paper, scenario: &Scenario) {
     for text in cautions(scenario) {
         paper.item(Tone::Plain, text);
     }
-}
-
-/// A logic simulation is no safety case; more of that where an interlock is spoken of.
-fn cautions(scenario: &Scenario) -> Vec<&'static str> {
-    let mut all = vec![
-        "Caution: a logic simulation is no safety case. Left out are metastable dwell, voltage levels, noise, supply ramps \
-         and part failures.",
-    ];
-    let names = scenario.circuit.nets().map(|net| scenario.circuit.name(net));
-    let labels = scenario.stimulus.moments.iter().map(|moment| moment.label.as_str());
-    let mut words = names.chain(labels).chain([scenario.title.as_str()]);
-    if words.any(|text| text.to_lowercase().contains("interlock")) {
-        all.push(
-            "Interlocks: the safety function follows the local code and is signed off by licensed people; mechanical \
-             interlocks and emergency stops stay independent of the logic.",
-        );
-    }
-    all
 }

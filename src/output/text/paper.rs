@@ -1,5 +1,6 @@
 //! Lines of text of limited width: wrapping, aligned columns, and colour where it is wanted.
 
+use super::blocks::Block;
 use crate::time::Unit;
 
 /// How a terminal shows text.
@@ -14,7 +15,7 @@ pub enum Style {
 
 /// What a line is like.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
-pub(super) enum Tone {
+pub(in crate::output) enum Tone {
     #[default]
     Plain,
     Strong,
@@ -54,11 +55,28 @@ pub(super) struct Paper {
     style: Style,
     width: usize,
     text: String,
+    /// What stands on a recorded paper; `None`: lines are written.
+    blocks: Option<Vec<Block>>,
 }
 
 impl Paper {
     pub fn new(style: Style, width: usize) -> Paper {
-        Paper { style, width: width.clamp(WIDTHS.0, WIDTHS.1), text: String::new() }
+        Paper { style, width: width.clamp(WIDTHS.0, WIDTHS.1), text: String::new(), blocks: None }
+    }
+
+    /// A paper without width and lines that remembers what was put on it, for pages with a layout of their own.
+    pub fn recorded() -> Paper {
+        Paper { style: Style::Plain, width: usize::MAX / 4, text: String::new(), blocks: Some(Vec::new()) }
+    }
+
+    /// What stands on a recorded paper; nothing of any other.
+    pub fn blocks(self) -> Vec<Block> {
+        self.blocks.unwrap_or_default()
+    }
+
+    /// How many entries a list may have: on a screen, or on a recorded paper.
+    pub fn most(&self, screen: usize, recorded: usize) -> usize {
+        if self.blocks.is_some() { recorded } else { screen }
     }
 
     pub fn finish(self) -> String {
@@ -74,6 +92,9 @@ impl Paper {
 
     /// A heading after a gap.
     pub fn heading(&mut self, text: &str) {
+        if let Some(blocks) = &mut self.blocks {
+            return blocks.push(Block::Heading(text.to_string()));
+        }
         self.gap();
         self.say(0, Tone::Strong, text);
     }
@@ -85,11 +106,17 @@ impl Paper {
 
     /// An entry of a list: a dash, and further lines below its text.
     pub fn item(&mut self, tone: Tone, text: &str) {
+        if let Some(blocks) = &mut self.blocks {
+            return blocks.push(Block::Item(tone, text.to_string()));
+        }
         self.hang(2, 4, tone, &format!("- {text}"));
     }
 
     /// A paragraph whose first line has an indent of its own.
     pub fn hang(&mut self, first: usize, indent: usize, tone: Tone, text: &str) {
+        if let Some(blocks) = &mut self.blocks {
+            return blocks.push(Block::Text(tone, text.to_string()));
+        }
         let mut line = " ".repeat(first);
         let mut is_empty = true;
         let mut used = first;
@@ -122,6 +149,9 @@ impl Paper {
 
     /// A line that must stay whole to be copied, such as a command; it may be wider than the page.
     pub fn whole(&mut self, indent: usize, text: &str) {
+        if let Some(blocks) = &mut self.blocks {
+            return blocks.push(Block::Command(text.to_string()));
+        }
         let text: String = text.chars().map(shown).collect();
         self.put(Tone::Plain, &format!("{}{text}", " ".repeat(indent)));
     }
@@ -129,6 +159,9 @@ impl Paper {
     /// A table, indented by two. Where there is no room a cell goes on below itself, and a column that would leave too little
     /// for the others goes below its row, with its title.
     pub fn table(&mut self, table: &Table) {
+        if let Some(blocks) = &mut self.blocks {
+            return blocks.push(Block::from(table));
+        }
         let (columns, widths) = table.fit(self.width - INDENT);
         let below: Vec<usize> = (0..table.columns.len()).filter(|column| !columns.contains(column)).collect();
         let titles: Vec<&str> = table.columns.iter().map(|column| column.title.as_str()).collect();
@@ -282,6 +315,15 @@ impl Table {
     pub fn row(&mut self, tone: Tone, cells: Vec<String>) {
         debug_assert_eq!(cells.len(), self.columns.len());
         self.rows.push((tone, cells));
+    }
+
+    /// Titles, each with whether its column holds numbers.
+    pub fn titles(&self) -> Vec<(String, bool)> {
+        self.columns.iter().map(|column| (column.title.clone(), column.right)).collect()
+    }
+
+    pub fn rows(&self) -> &[(Tone, Vec<String>)] {
+        &self.rows
     }
 
     /// Does all of it fit a page, in one line a row?

@@ -13,6 +13,7 @@ use crate::scenario::Scenario;
 const FULL: usize = 8;
 /// Windows told of.
 const WINDOWS: usize = 16;
+const WINDOWS_OF_A_PAGE: usize = 120;
 
 /// The text of `prove`. `files` are the names of the files of the witnesses, by claim.
 pub fn prove(scenario: &Scenario, asked: &Asked, proof: &Proof, files: &[Option<String>], page: &Page<'_>) -> String {
@@ -74,11 +75,22 @@ pub fn prove(scenario: &Scenario, asked: &Asked, proof: &Proof, files: &[Option<
             rules.iter().map(|(rule, count)| format!("{rule} ({})", words::count(*count))).collect();
         paper.say(2, Tone::Plain, &format!("{}.", each.join(", ")));
     }
+    beside_claims(&mut paper, scenario, asked, proof);
+    paper.finish()
+}
+
+/// Windows over all delays, margins, delays to add, and what was left out.
+pub(super) fn beside_claims(paper: &mut Paper, scenario: &Scenario, asked: &Asked, proof: &Proof) {
     if !proof.windows.is_empty() {
         paper.heading("Windows, over all delays");
-        let mut table =
-            Table::new().text("step").number("states", 0).number("settles from", 0).number("to", 0).text("");
-        for window in proof.windows.iter().take(WINDOWS) {
+        let most = paper.most(WINDOWS, WINDOWS_OF_A_PAGE);
+        let mut table = Table::new().text("step").number("states", 0).number("settles from", 0).number("to", 0);
+        let shown = || proof.windows.iter().take(most);
+        let remarked = shown().any(|window| window.settling_but_for_ties || window.settling_below);
+        if remarked {
+            table = table.text("remark");
+        }
+        for window in shown() {
             let label = scenario.stimulus.moments[window.moment as usize].label.clone();
             let states = window.states.as_ref().map_or("?".to_string(), |it| words::count(it.len() as u64));
             let [least, most] = match window.settling {
@@ -90,19 +102,20 @@ pub fn prove(scenario: &Scenario, asked: &Asked, proof: &Proof, files: &[Option<
                 (false, true) => "less than that",
                 (false, false) => "",
             };
-            table.row(Tone::Plain, vec![label, states, least, most, note.to_string()]);
+            let mut cells = vec![label, states, least, most];
+            cells.extend(remarked.then(|| note.to_string()));
+            table.row(Tone::Plain, cells);
         }
         paper.table(&table);
-        super::more(&mut paper, proof.windows.len().saturating_sub(WINDOWS), "proof.json");
+        super::more(paper, proof.windows.len().saturating_sub(most), "proof.json");
     }
-    super::prove_more::margins(&mut paper, scenario, asked, proof);
+    super::prove_more::margins(paper, scenario, asked, proof);
     if let Some(padding) = &proof.padding {
-        super::prove_more::padding(&mut paper, scenario, padding);
+        super::prove_more::padding(paper, scenario, padding);
     }
     for note in &proof.notes {
         paper.say(0, Tone::Unsure, note);
     }
-    paper.finish()
 }
 
 /// Claims with their reasons, those of one reason together.

@@ -13,6 +13,7 @@ use crate::sweep::SweepReport;
 
 /// Most reasons of the verdict.
 const REASONS: usize = 5;
+const REASONS_OF_A_PAGE: usize = 40;
 
 /// The text of `review`: verdict, reasons, steps, findings, rules, the delay-free view in short, notes.
 pub fn review(scenario: &Scenario, review: &Review, page: &Page<'_>) -> String {
@@ -45,10 +46,11 @@ pub(super) fn verdict(paper: &mut Paper, verdict: &Verdict) {
     paper.say(0, tone, &format!("{capital}{}", letters.as_str()));
     // a single reason is in the sentence already
     if verdict.reasons.len() > 1 {
-        for reason in verdict.reasons.iter().take(REASONS) {
+        let most = paper.most(REASONS, REASONS_OF_A_PAGE);
+        for reason in verdict.reasons.iter().take(most) {
             paper.item(Tone::Plain, reason);
         }
-        super::more(paper, verdict.reasons.len().saturating_sub(REASONS), "the JSON, with --json");
+        super::more(paper, verdict.reasons.len().saturating_sub(most), "the JSON, with --json");
     }
 }
 
@@ -63,18 +65,7 @@ pub(super) fn body(
     causes: Option<&mut Causes<'_>>,
 ) {
     paper.heading(&format!("{}: steps and settling times ({})", scenario.title, draws(report)));
-    if report.samples < report.plan.samples && !report.stopped.as_ref().is_some_and(|it| it.curve.sure) {
-        let (done, wanted) = (words::count(report.samples), words::count(report.plan.samples));
-        let missing = match report.missing.is_empty() {
-            true => String::new(),
-            false => format!(" Missing: {}.", report.missing.words()),
-        };
-        paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run.{missing}"));
-    }
-    for condition in report.conditions.iter().filter(|it| it.sweep.missing != report.missing) {
-        let (name, missing) = (&condition.condition.name, condition.sweep.missing.words());
-        paper.say(2, Tone::Unsure, &format!("Under condition {name}: missing {missing}."));
-    }
+    missing(paper, report);
     steps::steps(paper, scenario, report);
     findings::findings(paper, page, scenario, asked, report, searching, causes);
     conditions::conditions(paper, page, scenario, asked, report);
@@ -88,8 +79,24 @@ pub(super) fn body(
     }
 }
 
+/// What of the draws that were asked for was not run.
+pub(super) fn missing(paper: &mut Paper, report: &SweepReport) {
+    if report.samples < report.plan.samples && !report.stopped.as_ref().is_some_and(|it| it.curve.sure) {
+        let (done, wanted) = (words::count(report.samples), words::count(report.plan.samples));
+        let missing = match report.missing.is_empty() {
+            true => String::new(),
+            false => format!(" Missing: {}.", report.missing.words()),
+        };
+        paper.say(2, Tone::Unsure, &format!("Only {done} of {wanted} draws were run.{missing}"));
+    }
+    for condition in report.conditions.iter().filter(|it| it.sweep.missing != report.missing) {
+        let (name, missing) = (&condition.condition.name, condition.sweep.missing.words());
+        paper.say(2, Tone::Unsure, &format!("Under condition {name}: missing {missing}."));
+    }
+}
+
 /// What was drawn: `Monte Carlo, 10,000 draws, uniform, seed 1`.
-pub(super) fn draws(report: &SweepReport) -> String {
+pub(in crate::output) fn draws(report: &SweepReport) -> String {
     let mut text = format!(
         "Monte Carlo, {}, {}, seed {}",
         words::many(report.samples, "draw"),

@@ -12,7 +12,7 @@ use crate::time::{Span, rounded};
 const MOST: usize = 5;
 
 /// A question in words: `settle_within, open_upper, step together`.
-pub(super) fn about(scenario: &Scenario, question: &Question, with_step: bool) -> String {
+pub(in crate::output) fn about(scenario: &Scenario, question: &Question, with_step: bool) -> String {
     let mut text = question.rule.word().to_string();
     if let Some(name) = &question.name {
         text += &format!(" \"{name}\"");

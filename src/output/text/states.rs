@@ -12,6 +12,7 @@ use crate::scenario::Scenario;
 
 /// Most rows told of.
 const ROWS: usize = 10;
+const ROWS_OF_A_PAGE: usize = 64;
 /// Most names in a list.
 const NAMES: usize = 12;
 
@@ -19,6 +20,16 @@ const NAMES: usize = 12;
 /// read off it: races, hazards, coverage, the automaton, the reference.
 pub fn states(scenario: &Scenario, report: &StatesReport, page: &Page<'_>) -> String {
     let mut paper = page.paper();
+    state_set(&mut paper, scenario, report);
+    flow::dynamics(&mut paper, scenario, &report.flow);
+    flow::reading(&mut paper, scenario, &report.flow);
+    flow::reference(&mut paper, scenario, &report.flow);
+    notes::notes(&mut paper, scenario);
+    paper.finish()
+}
+
+/// How many stable states there are, what tells them apart, and the flow table or some states by input vector.
+pub(super) fn state_set(paper: &mut Paper, scenario: &Scenario, report: &StatesReport) {
     let (tone, count) = match &report.count {
         Some(count) => {
             let plural = if count == "1" { "" } else { "s" };
@@ -44,14 +55,9 @@ pub fn states(scenario: &Scenario, report: &StatesReport, page: &Page<'_>) -> St
     let variables = if known { list(&report.state_variables) } else { "not known, the budget ran out".to_string() };
     let fewest = if report.state_variables.is_empty() { String::new() } else { format!(" ({fewest})") };
     paper.say(2, Tone::Plain, &format!("State variables: {variables}{fewest}."));
-    if !flow::table(&mut paper, scenario, report) {
-        by_inputs(&mut paper, scenario, report);
+    if !flow::table(paper, scenario, report) {
+        by_inputs(paper, scenario, report);
     }
-    flow::dynamics(&mut paper, scenario, &report.flow);
-    flow::reading(&mut paper, scenario, &report.flow);
-    flow::reference(&mut paper, scenario, &report.flow);
-    notes::notes(&mut paper, scenario);
-    paper.finish()
 }
 
 fn by_inputs(paper: &mut Paper, scenario: &Scenario, report: &StatesReport) {
@@ -65,7 +71,7 @@ fn by_inputs(paper: &mut Paper, scenario: &Scenario, report: &StatesReport) {
     let mut rows = 0usize;
     let mut shown = 0usize;
     for (vector, states) in &report.inputs {
-        if rows > 0 && rows + states.len().max(1) > ROWS {
+        if rows > 0 && rows + states.len().max(1) > paper.most(ROWS, ROWS_OF_A_PAGE) {
             break;
         }
         shown += 1;

@@ -9,6 +9,7 @@ use crate::sweep::{Settling, SweepReport, WindowReport};
 
 /// Most rows of the table.
 const ROWS: usize = 16;
+const ROWS_OF_A_PAGE: usize = 120;
 /// Most outcomes of one step.
 const OUTCOMES: usize = 4;
 /// Most nets of a state.
@@ -54,7 +55,7 @@ pub(super) fn steps(paper: &mut Paper, scenario: &Scenario, report: &SweepReport
         .number("99th perc.", 3)
         .number("longest", 1);
     let all: Vec<Vec<Line>> = report.windows.iter().map(|window| lines(scenario, window)).collect();
-    let shown = chosen(&report.windows, &all);
+    let shown = chosen(&report.windows, &all, paper.most(ROWS, ROWS_OF_A_PAGE));
     for ((window, lines), _) in report.windows.iter().zip(&all).zip(&shown).filter(|it| *it.1) {
         for (i, Line { tone, draws, words }) in lines.iter().enumerate() {
             let first = i == 0;
@@ -74,13 +75,13 @@ pub(super) fn steps(paper: &mut Paper, scenario: &Scenario, report: &SweepReport
 }
 
 /// Which windows are shown: where a rule is broken first, then in order, until the rows are used up.
-fn chosen(windows: &[WindowReport], lines: &[Vec<Line>]) -> Vec<bool> {
+fn chosen(windows: &[WindowReport], lines: &[Vec<Line>], most: usize) -> Vec<bool> {
     let mut shown = vec![false; windows.len()];
     let mut rows = 0;
     for wanted in [true, false] {
         for (shown, (window, lines)) in shown.iter_mut().zip(windows.iter().zip(lines)) {
             let broken = window.unsettled > 0 || window.outcomes.iter().any(|outcome| outcome.breaks_rule);
-            if broken == wanted && (rows == 0 || rows + lines.len() <= ROWS) {
+            if broken == wanted && (rows == 0 || rows + lines.len() <= most) {
                 rows += lines.len();
                 *shown = true;
             }

@@ -100,7 +100,7 @@ impl Told {
 }
 
 /// `it takes green fall 13.2 ns [9 … 16 ns] (29 % from typ to max); else typical`.
-fn needs(scenario: &Scenario, why: &Why) -> Option<String> {
+pub(in crate::output) fn needs(scenario: &Scenario, why: &Why) -> Option<String> {
     let needs = why.needs.as_ref()?;
     let mut parts: Vec<String> = needs.away.iter().take(NAMED).map(|it| away(scenario, it)).collect();
     let more = needs.away.len().saturating_sub(NAMED);
@@ -137,7 +137,7 @@ fn away(scenario: &Scenario, it: &Away) -> String {
 }
 
 /// `over all failing draws: float_not delay long (0.83), up_b delay short (0.31)`.
-fn pull(scenario: &Scenario, why: &Why) -> Option<String> {
+pub(in crate::output) fn pull(scenario: &Scenario, why: &Why) -> Option<String> {
     let told = &why.pull.as_ref()?.told;
     let each = |it: &Pull| {
         let side = if it.strength > 0.0 { "long" } else { "short" };

@@ -84,6 +84,12 @@ impl Axis {
         self.pieces.last().map_or(0.0, |piece| piece.right)
     }
 
+    /// The straight pieces: from, to, and the pixels of both.
+    pub fn pieces(&self) -> Vec<(Time, Time, f64, f64)> {
+        let piece = |it: &Piece| (Time::from_fs(it.from), Time::from_fs(it.to), it.left, it.right);
+        self.pieces.iter().map(piece).collect()
+    }
+
     /// The stretches that were cut out.
     pub fn cuts(&self) -> impl Iterator<Item = Cut> + '_ {
         self.pieces.windows(2).map(|pair| Cut {

@@ -10,7 +10,7 @@ use super::laid::Stretch;
 use super::lane::Wave;
 use super::marks::{self, Ending, Spot, Step};
 use super::places::{self, BRACKET, Bracket, Rest};
-use super::{MOST_EDGES, Picture};
+use super::{MOST_EDGES, Picture, Scale};
 use crate::circuit::NetId;
 use crate::engine::{End, Window};
 use crate::logic::{State, Value};
@@ -209,6 +209,13 @@ impl Frame {
             height: (y + MARGIN).ceil(),
             solid,
         }
+    }
+}
+
+impl Frame {
+    /// Where times are.
+    pub fn scale(&self) -> Scale {
+        Scale { pieces: self.axis.pieces(), lanes: (self.lanes_top, self.axis_y), size: (WIDTH, self.height) }
     }
 }
 

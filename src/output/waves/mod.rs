@@ -81,11 +81,24 @@ pub struct Picture<'a> {
     pub id: String,
 }
 
+/// Where times are on a sheet, so that something can be drawn over it.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Scale {
+    /// Straight pieces of the time axis, in order: from, to, and the pixels of both. Between two of them time is left out.
+    pub pieces: Vec<(Time, Time, f64, f64)>,
+    /// Height of the top of the lanes and of the axis, pixels.
+    pub lanes: (f64, f64),
+    /// Width and height of the sheet, pixels.
+    pub size: (f64, f64),
+}
+
 /// One sheet of a picture.
-#[derive(Clone, Debug, PartialEq, Eq)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Sheet {
     /// A complete SVG element, about 1000 pixels wide, with a text alternative.
     pub svg: String,
+    /// Where times are.
+    pub scale: Scale,
     /// The nets it shows.
     pub nets: Vec<NetId>,
     /// Nets that were asked for and that no sheet shows.
@@ -167,7 +180,7 @@ pub fn sheets(picture: &Picture<'_>) -> Vec<Sheet> {
     let behind = behind::Behind::of(picture);
     let draw = |(number, nets): (usize, Vec<NetId>)| {
         let frame = frame::Frame::new(picture, &behind, &nets, &choice.left_out, (number, many));
-        Sheet { svg: draw::svg(picture, &frame), nets, left_out: choice.left_out.clone() }
+        Sheet { svg: draw::svg(picture, &frame), scale: frame.scale(), nets, left_out: choice.left_out.clone() }
     };
     choice.sheets.into_iter().enumerate().map(draw).collect()
 }
