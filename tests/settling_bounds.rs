@@ -127,7 +127,11 @@ fn is_met(text: &dyn Fn(&str) -> String) -> bool {
         // what is come near to is not met a femtosecond earlier either
         assert_eq!(refuted.is_empty(), below, "{refuted:?} {text}");
         for claim in refuted {
-            let case = claim.witness.as_ref().unwrap_or_else(|| panic!("no case: {claim:?} {text}"));
+            // it may take a gate that fires twice with two delays, and constant ones were looked for
+            let Some(case) = &claim.witness else {
+                assert_eq!(claim.call, Call::Undecided, "{claim:?} {text}");
+                continue;
+            };
             assert_eq!((claim.call, run(&scenario, case)), (Call::Refuted, most), "{text}");
         }
     }
