@@ -1,9 +1,9 @@
 #!/usr/bin/env python3
 """The same network in Stillgate and in SimPy, a general-purpose discrete-event library for Python.
 
-    python3 -m venv /tmp/simpy && /tmp/simpy/bin/pip install simpy
+    python3 -m venv target/simpy && target/simpy/bin/pip install simpy
     cargo build --release
-    /tmp/simpy/bin/python scripts/compare-simpy.py
+    target/simpy/bin/python scripts/compare-simpy.py
 
 Rings of three inverting gates, tied together by XORs, with fixed delays drawn here, let go at 100 ps and stopped later. Both
 must give the same transitions: every net, every time, to the femtosecond. Then both are timed: SimPy by its processor time

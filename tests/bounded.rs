@@ -67,7 +67,7 @@ impl World {
 
     fn moves(&self, net: &str, steps: u32, mode: Mode) -> Vec<u32> {
         let net = self.plant.local(self.scenario.circuit.net(net).unwrap()).unwrap();
-        let found = self.explore(&Moves { net, most: 2 }, mode);
+        let found = self.explore(&Moves { net, most: 2, from: None }, mode);
         let mut all: Vec<u32> = found
             .hits
             .keys()

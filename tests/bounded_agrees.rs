@@ -15,7 +15,7 @@ use stillgate::control::Control;
 use stillgate::delay::DelayRange;
 use stillgate::proof::zone::{self, Code};
 use stillgate::proof::{
-    Budget, Ended, Exact, Explored, Mode, Moves, NOWHERE, Nothing, Plant, RestVerdict, Semantics, Settles, Watch,
+    Budget, Ended, Exact, Explored, Mode, Moves, Nothing, Plant, RestVerdict, START, Semantics, Settles, Watch,
     comes_to_rest, explore_under,
 };
 use stillgate::scenario::{Begin, Clock, Place, Scenario};
@@ -44,6 +44,9 @@ struct Met {
     /// Oscillations that took too many zones to decide.
     undecided: u64,
     cut: u64,
+    /// Steps whose pattern came, and that never came.
+    waited: u64,
+    missed: u64,
     finer: u64,
     too_many: u64,
     states: u64,
@@ -66,6 +69,10 @@ enum Rule {
     Cools,
     /// Takes an event for old from its beginning on.
     Old,
+    /// A step comes strictly after its pattern.
+    Follows,
+    /// Takes a pattern between the parts of a batch for come.
+    Peeks,
 }
 
 type Rules = (Rule, Mode);
@@ -92,6 +99,12 @@ impl Semantics for Rule {
     fn cools(&self) -> bool {
         *self != Rule::Cools
     }
+    fn follows(&self) -> bool {
+        *self != Rule::Follows
+    }
+    fn peeks(&self) -> bool {
+        *self == Rule::Peeks
+    }
 }
 
 fn budget() -> Budget {
@@ -103,6 +116,8 @@ struct Said {
     rests: BTreeSet<(u32, u32, u32)>,
     moves: Vec<BTreeSet<(u32, bool, u32)>>,
     settles: Vec<(u32, (i64, i64))>,
+    /// Steps whose pattern does not come.
+    missed: BTreeSet<u32>,
 }
 
 impl Case {
@@ -141,7 +156,7 @@ impl Case {
             return Err(format!("{:?}", found.ended));
         }
         let state = |number: u32| found.states[number as usize][0] as u32;
-        let origin = |number: u32| if number == NOWHERE { NO_ORIGIN } else { state(number) };
+        let origin = |number: u32| if number >= START { NO_ORIGIN } else { state(number) };
         let rests = found.rests.keys().map(|rest| (rest.steps, origin(rest.origin), state(rest.state))).collect();
         let mut moves = Vec::new();
         for net in &nets[self.world.inputs.len()..] {
@@ -150,7 +165,7 @@ impl Case {
                 continue;
             }
             let cone = Plant::of(&scenario, &[*net], &[fs(1)]).map_err(|error| error.to_string())?;
-            let watch = Moves { net: cone.local(*net).unwrap(), most: 2 };
+            let watch = Moves { net: cone.local(*net).unwrap(), most: 2, from: None };
             let found = self.explore(by, &cone, &watch);
             if found.ended != Ended::Complete {
                 return Err(format!("{:?}", found.ended));
@@ -165,7 +180,8 @@ impl Case {
                 figures = watch.figures.borrow().iter().map(|(s, [least, most])| (*s, (least.0, most.0))).collect();
             }
         }
-        Ok(Said { rests, moves, settles: figures })
+        let missed = found.missed.keys().copied().collect();
+        Ok(Said { rests, moves, settles: figures, missed })
     }
 
     fn seen(&self, fine: u64, times: bool, most: usize) -> Option<Seen> {
@@ -216,6 +232,9 @@ impl Case {
                     return Err(format!("not in the zones: g{gate} {more:?} (steps, before, transitions)"));
                 }
             }
+            if let Some(more) = seen.never_came.difference(&said.missed).next() {
+                return Err(format!("not in the zones: step {} never comes", more + 1));
+            }
             for (steps, (least, most)) in &seen.settles {
                 let Some((_, (lo, hi))) = said.settles.iter().find(|figure| figure.0 == *steps) else { continue };
                 if (*least as i64) < lo * fine as i64 || *most as i64 > hi * fine as i64 {
@@ -229,6 +248,10 @@ impl Case {
                     let more = said.difference(seen).next().filter(|_| !by_parts)?;
                     Some(format!("g{gate} {more:?} (steps, before, transitions)"))
                 })
+            });
+            let over = over.or_else(|| {
+                let more = said.missed.difference(&seen.never_came).next()?;
+                Some(format!("step {} never comes", more + 1))
             });
             let Some(over) = over else { break };
             let Some(next) = finer.next() else { return Err(format!("on no grid: {over}")) };
@@ -244,6 +267,11 @@ impl Case {
         if matches!(by.0, Rule::Right) {
             self.compare_cycles(&seen, met)?;
         }
+        met.missed += u64::from(!said.missed.is_empty());
+        met.waited += u64::from(self.world.steps.iter().enumerate().any(|(s, step)| {
+            let came = |rest: &(u32, u32, u32)| rest.0 as usize > s;
+            matches!(step.place, Place::When { .. }) && said.rests.iter().any(came)
+        }));
         met.cycles += u64::from(seen.cycle);
         met.tie_cycles += u64::from(seen.cycle && !seen.cycle_apart);
         met.several +=
@@ -588,6 +616,18 @@ fn any_start() {
     );
 }
 
+/// Steps that wait for a pattern, with and without an end of the wait.
+#[test]
+fn patterns() {
+    let kind = Kind { wires: 0.0, timed: true, power_up: false, waits: true, ties: false, clock: false };
+    let met = random_cases(44, scaled(3000), kind);
+    assert!(met.waited * 5 > met.cases && met.missed * 10 > met.cases, "{met:?}");
+    random_cases(45, scaled(800), Kind { wires: 0.4, power_up: true, ..kind });
+    let met = random_cases(46, scaled(2000), Kind { ties: true, power_up: true, ..kind });
+    assert!(met.waited * 5 > met.cases && met.missed * 20 > met.cases, "{met:?}");
+    random_cases(47, scaled(300), Kind { clock: true, ..kind });
+}
+
 /// Everything at once, with exact delays.
 #[test]
 fn ties() {
@@ -611,10 +651,12 @@ fn a_weaker_rule_is_noticed() {
         Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: false, clock: false },
         Kind { wires: 0.5, timed: true, power_up: false, waits: false, ties: false, clock: false },
         Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true, clock: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: true, ties: true, clock: false },
     ];
     let apart = Mode { joint: false, ..TOGETHER };
-    let weaker =
-        [Rule::Due, Rule::Cancelled, Rule::Lasts, Rule::Later, Rule::Cools, Rule::Old].map(|rule| (rule, TOGETHER));
+    let rules =
+        [Rule::Due, Rule::Cancelled, Rule::Lasts, Rule::Later, Rule::Cools, Rule::Old, Rule::Follows, Rule::Peeks];
+    let weaker = rules.map(|rule| (rule, TOGETHER));
     for rules in weaker.into_iter().chain([(Rule::Right, apart)]) {
         let mut met = Met::default();
         let noticed = (0..3000).position(|stream| {
@@ -633,6 +675,7 @@ fn a_hull_holds_no_less() {
         Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: false, clock: false },
         Kind { wires: 0.5, timed: true, power_up: false, waits: false, ties: false, clock: false },
         Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true, clock: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: true, ties: true, clock: false },
     ];
     let hull = Mode { merge: stillgate::proof::Merge::Hull, ..TOGETHER };
     let (mut met, mut cases, mut more) = (Met::default(), 0, 0);
@@ -642,7 +685,8 @@ fn a_hull_holds_no_less() {
             let Ok(held) = case.said(&(Rule::Right, hull), false, &mut met) else { continue };
             cases += 1;
             let moves = exact.moves.iter().zip(&held.moves).all(|(exact, held)| exact.is_subset(held));
-            assert!(exact.rests.is_subset(&held.rests) && moves, "stream {stream}, case {number}");
+            let missed = exact.missed.is_subset(&held.missed);
+            assert!(exact.rests.is_subset(&held.rests) && moves && missed, "stream {stream}, case {number}");
             more += u64::from(exact.rests != held.rests || exact.moves != held.moves);
         }
     }

@@ -11,7 +11,7 @@ use stillgate::delay::DelayRange;
 use stillgate::engine::End;
 use stillgate::instance::{Instance, Which};
 use stillgate::logic::{Bits, Value};
-use stillgate::proof::{Budget, Ended, Mode, Moves, NOWHERE, Plant, Settles, explore};
+use stillgate::proof::{Budget, Ended, Mode, Moves, Plant, START, Settles, explore};
 use stillgate::scenario::{Clock, Mark, Place, Scenario};
 use stillgate::time::Span;
 
@@ -165,15 +165,20 @@ fn check(world: &World, rest: &Bits, rng: &mut ChaCha8Rng, met: &mut Met) -> Res
     let settles = Settles::default();
     let timed = explore(&plant, std::slice::from_ref(&start), &settles, Mode::default(), &budget);
     let timed = timed.ended == Ended::Complete;
-    let state = |number: u32| if number == NOWHERE { u64::MAX } else { found.states[number as usize][0] };
+    let state = |number: u32| if number >= START { u64::MAX } else { found.states[number as usize][0] };
     let rests: BTreeSet<(u32, u64, u64)> =
         (found.rests.keys()).map(|rest| (rest.steps, state(rest.origin), state(rest.state))).collect();
     let mut moves: Vec<Option<BTreeSet<(u32, bool, u32)>>> = Vec::new();
     for net in &nets[world.inputs.len()..] {
         let cone = Plant::of(&scenario, &[*net], &[fs(1)]).map_err(|error| error.to_string())?;
         let from: Vec<bool> = cone.nets.iter().map(|net| start[net.index()]).collect();
-        let found =
-            explore(&cone, &[from], &Moves { net: cone.local(*net).unwrap(), most: 2 }, Mode::default(), &budget);
+        let found = explore(
+            &cone,
+            &[from],
+            &Moves { net: cone.local(*net).unwrap(), most: 2, from: None },
+            Mode::default(),
+            &budget,
+        );
         moves.push((found.ended == Ended::Complete).then(|| {
             let moved = found.hits.keys().map(|hit| Moves::moved(*hit));
             moved.map(|moved| (moved.steps, moved.before, moved.count)).collect()

@@ -110,7 +110,13 @@ fn check(name: &str, page: &str, review: &Review, scenario: &Scenario) {
         let has = |selector: &str| table.select(&Selector::parse(selector).unwrap()).next().is_some();
         let caption = table.select(&Selector::parse("caption").unwrap()).map(text).collect::<String>();
         assert!(!caption.trim().is_empty() && has("thead th[scope=col]"), "{name}: the table {caption:?}");
-        let columns = table.select(&Selector::parse("thead th").unwrap()).count();
+        // a corner without a title is a cell and no header
+        let columns = table.select(&Selector::parse("thead th, thead td").unwrap()).count();
+        let header = Selector::parse("thead th").unwrap();
+        assert!(
+            table.select(&header).all(|it| !text(it).trim().is_empty()),
+            "{name}: {caption}: a header without a title"
+        );
         for row in table.select(&Selector::parse("tbody tr").unwrap()) {
             assert_eq!(row.child_elements().count(), columns, "{name}: {caption}: {}", text(row));
         }

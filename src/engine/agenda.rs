@@ -190,19 +190,6 @@ impl Agenda {
         state: &State,
         due: &mut Due,
     ) {
-        self.take_all(at, stimulus, instance, quiet_since, state, due);
-        due.sum_up(state);
-    }
-
-    fn take_all(
-        &mut self,
-        at: Time,
-        stimulus: &Stimulus,
-        instance: &Instance,
-        quiet_since: Option<Time>,
-        state: &State,
-        due: &mut Due,
-    ) {
         let present = |net: NetId| state.get(net.index()) == Value::One;
         due.moments.clear();
         due.set.clear();
@@ -257,9 +244,6 @@ impl Agenda {
             self.step += 1;
             self.wait_for_pattern(stimulus);
         }
-        if self.clocks.is_empty() {
-            return;
-        }
         let edges: u32 = stimulus.clocks.iter().map(|clock| 2 * clock.count).sum();
         let mut base = stimulus.moments.len() as u32 - edges;
         for (c, clock) in stimulus.clocks.iter().enumerate() {
@@ -279,6 +263,7 @@ impl Agenda {
             }
             base += 2 * clock.count;
         }
+        due.sum_up(state);
     }
 
     /// Inputs with changes to come.

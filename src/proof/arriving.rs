@@ -2,12 +2,13 @@
 
 use super::explore::Explorer;
 use super::explored::{Ended, Merge, Node, Rest};
-use super::key::{KeyMut, Mover};
+use super::key::{KeyMut, Mover, Slot};
 use super::outside;
 use super::passed::{Cell, Kept};
 use super::plant::PlantPlace;
 use super::semantics::Semantics;
 use super::watch::{Arrival, Watch};
+use super::zone;
 
 /// Joins of one zone until what still grows is given up.
 const JOINS: u32 = 32;
@@ -17,12 +18,20 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
     pub fn arrive(&mut self, number: u32, parent: u32, movers: &[Mover]) {
         let info = &self.known.infos[number as usize];
         let key = self.found.key(number);
-        let (state, rest, steps, row) = (key.watch(), info.rest, key.steps(), info.watch_row);
-        let (window, ended) = (key.window(), outside::ended(self.plant, key));
+        let (state, rest, steps, row) = (key.watch(), info.core_rest, key.steps(), info.watch_row);
+        let (window, all_rests) = (key.window(), info.rest);
+        let place = self.plant.steps.get(steps).map(|step| step.place);
+        let waiting = matches!(place, Some(PlantPlace::When { .. })) && !key.came();
+        let comes = waiting && key.skew() == 0 && self.plant.shows_pattern(steps, key.values());
+        // at rest nothing brings the pattern any more
+        let stuck = waiting && !comes && info.rest && key.clocks_over(self.plant);
+        let ended = outside::ended(self.plant, key) || stuck;
         let lasting = info.limits.iter().all(|(row, most)| self.entry.allows(*row, self.semantics.lasts(*most)));
-        if lasting {
+        // the start shows even where the first step comes at that very instant
+        let shows = lasting || parent == u32::MAX;
+        if shows {
             let mut zone = &self.entry;
-            if self.watch.measures() {
+            if lasting && self.watch.measures() {
                 self.lasting.load(self.entry.size, &self.entry.bounds);
                 for (row, most) in &info.limits {
                     self.lasting.bound(*row, 0, self.semantics.lasts(*most));
@@ -33,21 +42,28 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             let hits = &mut self.hits;
             self.watch.arrive(state, &arrival, &mut |hit| hits.push(hit));
         }
-        let rested = (rest && lasting).then(|| {
+        let rested = (rest && shows).then(|| {
             let (values, origin) = (key.values().to_vec(), key.origin());
             (values, origin)
         });
         let rested = rested.map(|(values, origin)| Rest { steps: window, origin, state: self.state_number(&values) });
 
+        if comes {
+            self.pattern_came(number, parent, movers, lasting, rested);
+            return;
+        }
         // time passes, but for a step that waits for rest
         let mut number = number;
-        let waits = rest
-            && matches!(self.plant.steps.get(steps).map(|step| step.place), Some(PlantPlace::Rest(_)))
-            && self.found.key(number).clocks_over(self.plant);
-        let mut goes_on = true;
+        let waits =
+            all_rests && matches!(place, Some(PlantPlace::Rest(_))) && self.found.key(number).clocks_over(self.plant);
+        let (mut goes_on, mut missed) = (true, false);
         if !waits {
             let info = &self.known.infos[number as usize];
             self.entry.elapse(&info.limits);
+            if let Some((row, most)) = info.gives_up.filter(|_| !stuck) {
+                self.entry.bound(row, 0, zone::at_most(most));
+            }
+            missed = waiting && !self.found.missed.contains_key(&(steps as u32)) && (stuck || self.gives_up(number));
             let hits = &mut self.hits;
             let (new_state, left) = self.watch.elapsed(state, &mut self.entry, row, &mut |hit| hits.push(hit));
             goes_on = left;
@@ -59,14 +75,29 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             true => self.keep(number, parent, movers),
             false => None,
         };
-        // what was found is kept with a way to it, even if the zone is not
+        self.note(node, number, (parent, movers), rested, missed.then_some(steps as u32));
+    }
+
+    /// What was found on arrival is kept with a way to it, even if the zone is not.
+    fn note(
+        &mut self,
+        node: Option<u32>,
+        number: u32,
+        (parent, movers): (u32, &[Mover]),
+        rested: Option<Rest>,
+        missed: Option<u32>,
+    ) {
         let first = rested.is_some_and(|rest| !self.found.rests.contains_key(&rest))
+            || missed.is_some()
             || self.hits.iter().any(|hit| !self.found.hits.contains_key(hit));
         let node = match node {
             None if first => Some(self.push(number, parent, movers, false)),
             node => node,
         };
         if let Some(node) = node {
+            if let Some(step) = missed {
+                self.found.missed.entry(step).or_insert(node);
+            }
             if let Some(rest) = rested {
                 self.found.rests.entry(rest).or_insert(node);
             }
@@ -76,6 +107,66 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         }
         if self.mode.first_hit && !self.found.hits.is_empty() {
             self.end(Ended::Hit);
+        }
+    }
+
+    /// Can the time run out in which a pattern must come, in the zone in `entry`? What happens at that very instant may still
+    /// bring it.
+    fn gives_up(&mut self, number: u32) -> bool {
+        let info = &self.known.infos[number as usize];
+        let Some((row, most)) = info.gives_up else { return false };
+        let (lasting, semantics) = (&mut self.lasting, self.semantics);
+        lasting.load(self.entry.size, &self.entry.bounds);
+        let mut lasts = info.limits.iter().map(|(row, limit)| lasting.bound(*row, 0, semantics.lasts(*limit)));
+        lasts.all(|left| left) && self.lasting.at_least(row, most)
+    }
+
+    /// The pattern that the next step waits for shows in `entry`. It has come where the batch ends here; else the batch goes
+    /// on at this very instant.
+    fn pattern_came(&mut self, number: u32, parent: u32, movers: &[Mover], lasting: bool, rested: Option<Rest>) {
+        let begins = parent == u32::MAX;
+        // what is due at the start comes together with the step
+        let ends = !begins && !self.semantics.peeks();
+        let whole = std::mem::take(&mut self.entry);
+        let mut node = None;
+        if lasting || !ends {
+            self.words.copy_from_slice(self.found.key(number).words);
+            self.excited.clone_from(&self.known.infos[number as usize].excited);
+            KeyMut { words: &mut self.words, layout: self.layout }.set_pattern(true, ends);
+            let next = self.intern();
+            let (old, new) = (&self.known.infos[number as usize], &self.known.infos[next as usize]);
+            self.work.load(whole.size, &whole.bounds);
+            if ends {
+                for (row, most) in &old.limits {
+                    self.work.bound(*row, 0, self.semantics.lasts(*most));
+                }
+            }
+            self.from.clear();
+            let mut last = 0;
+            for slot in &new.slots {
+                let row = if *slot == Slot::Held { 0 } else { old.row_after(*slot, last) };
+                last = last.max(row);
+                self.from.push(row);
+            }
+            self.work.gather(&self.from, &mut self.entry);
+            self.entry.elapse(&new.limits);
+            let (state, row) = (self.found.key(number).watch(), new.watch_row);
+            let hits = &mut self.hits;
+            let (new_state, goes_on) = self.watch.elapsed(state, &mut self.entry, row, &mut |hit| hits.push(hit));
+            let next = if goes_on && new_state != state { self.with_watch(next, new_state) } else { next };
+            if goes_on {
+                node = self.keep(next, parent, movers);
+            }
+            self.note(node, next, (parent, movers), rested, None);
+        }
+        let info = &self.known.infos[number as usize];
+        if !begins
+            && !self.found.key(number).held()
+            && info.agents.iter().any(|agent| whole.may_reach(agent.row, self.semantics.due(agent.min)))
+        {
+            self.entry = whole;
+            let node = self.keep(number, parent, movers);
+            self.note(node, number, (parent, movers), None, None);
         }
     }
 

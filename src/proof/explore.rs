@@ -9,8 +9,8 @@ use std::time::Instant;
 
 use rustc_hash::FxHashMap;
 
-use super::explored::{Budget, Ended, Explored, Mode, NOWHERE, Node};
-use super::key::{self, Agent, KeyMut, Layout, put};
+use super::explored::{Budget, Ended, Explored, Mode, Node, START};
+use super::key::{self, Agent, KeyMut, Layout, Mover, put};
 use super::known::Known;
 use super::outside;
 use super::passed::{Bounds, Cell};
@@ -148,7 +148,7 @@ impl<'a, W: Watch, S: Semantics, C: Cell> Explorer<'a, W, S, C> {
         }
         let values = self.words[..self.layout.values].to_vec();
         let watch = self.watch.start(self.plant, &values);
-        let origin = if self.plant.power_up { self.state_number(&values) } else { NOWHERE };
+        let origin = if self.plant.power_up { self.state_number(&values) } else { START };
         for gate in 0..self.plant.gates.len() {
             put(&mut self.excited, gate, key::excited(self.plant, &values, gate));
         }
@@ -181,7 +181,9 @@ impl<'a, W: Watch, S: Semantics, C: Cell> Explorer<'a, W, S, C> {
         self.words.copy_from_slice(self.found.key(number).words);
         let origin = self.found.key(number).origin();
         self.excited.clone_from(&self.known.infos[number as usize].excited);
+        let held = self.found.key(number).held();
         let mut key = KeyMut { words: &mut self.words, layout: self.layout };
+        key.set_pattern(false, held);
         key.set_step(self.plant.steps.len(), origin);
         self.plant.clocks.iter().enumerate().for_each(|(c, clock)| key.set_edges(c, clock.edges));
         self.intern()
@@ -230,6 +232,18 @@ impl<'a, W: Watch, S: Semantics, C: Cell> Explorer<'a, W, S, C> {
         {
             self.try_fire(node, &[]);
             return;
+        }
+        let it = self.found.key(key);
+        if it.came()
+            && it.held()
+            && let Some(PlantPlace::When { wait, .. }) = self.next_place(key)
+            && wait.min == 0
+            && self.semantics.follows()
+        {
+            for steps in self.plant.at_once(it.steps()) {
+                // row 0 stands for "at this very instant"
+                self.try_fire(node, &[Agent { mover: Mover::Step(u64::MAX), row: 0, min: 0, steps, edges: 0 }]);
+            }
         }
         let mut enabled = 0u64;
         let mut at = 0;

@@ -7,8 +7,12 @@ use super::key::{Key, Layout, Mover};
 use super::plant::Plant;
 use crate::control::Control;
 
-/// The origin of a window that did not begin at rest, or of none.
+/// The origin of a window that did not begin at rest.
 pub const NOWHERE: u32 = u32::MAX;
+/// The same where a step that changes nothing has come at rest since.
+pub const SINCE: u32 = u32::MAX - 1;
+/// The origin where nothing has changed since a start at rest.
+pub const START: u32 = u32::MAX - 2;
 
 /// What is done with a zone whose key is known.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
@@ -93,7 +97,7 @@ pub struct Rest {
     /// edge, in the order of the scenario's moments; where several came at once that of the first, and [`Plant::windows`] more.
     pub steps: u32,
     /// The state at rest in which its window began (with the last step that changed an input here), by number; [`NOWHERE`]
-    /// if it did not begin at rest.
+    /// if it did not begin at rest, [`SINCE`] if a step that changes nothing has come at rest since, [`START`] before the first.
     pub origin: u32,
     /// Itself, by number.
     pub state: u32,
@@ -108,6 +112,8 @@ pub struct Fired {
     pub values: Vec<u64>,
     /// Steps taken after it.
     pub steps: usize,
+    /// Has the pattern come by then that the next step waits for?
+    pub came: bool,
 }
 
 /// What an exploration found.
@@ -122,6 +128,8 @@ pub struct Explored {
     pub bytes: u64,
     /// States at rest, each with the node that led to it first.
     pub rests: BTreeMap<Rest, u32>,
+    /// Steps (by number) that wait for a pattern that does not come, each with the node at which the first of them gives up.
+    pub missed: BTreeMap<u32, u32>,
     /// The states that numbers stand for: values of all signals.
     pub states: Vec<Box<[u64]>>,
     /// Hits of the watch, each with the node that led to it first.
@@ -143,6 +151,7 @@ impl Explored {
             met: 0,
             bytes: 0,
             rests: BTreeMap::new(),
+            missed: BTreeMap::new(),
             states: Vec::new(),
             hits: BTreeMap::new(),
             edges: Vec::new(),
@@ -167,7 +176,7 @@ impl Explored {
             let it = &self.nodes[at as usize];
             let key = self.key(it.key);
             let movers = self.movers[it.fired.0 as usize..it.fired.1 as usize].to_vec();
-            blocks.push(Fired { movers, values: key.values().to_vec(), steps: key.steps() });
+            blocks.push(Fired { movers, values: key.values().to_vec(), steps: key.steps(), came: key.came() });
             at = it.parent;
         }
         blocks.reverse();

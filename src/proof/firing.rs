@@ -1,7 +1,7 @@
 //! One firing: what it asks of the clocks, what it changes, and which clocks run after it.
 
 use super::explore::Explorer;
-use super::explored::{Ended, NOWHERE};
+use super::explored::{Ended, NOWHERE, SINCE};
 use super::key::{self, Agent, Key, KeyMut, Mover, Slot, bit, put};
 use super::outside;
 use super::passed::Cell;
@@ -79,6 +79,13 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
     fn is_due(&mut self, firing: &Firing<'_>, agents: &[Agent]) -> bool {
         let (plant, steps) = (self.plant, firing.steps);
         let info = &self.known.infos[firing.key as usize];
+        let held = info.row(Slot::Held);
+        if firing.has(Mover::Apart) {
+            return self.work.bound(held, 0, zone::AT_MOST_ZERO);
+        }
+        if held > 0 && !agents.is_empty() && !self.work.bound(0, held, self.semantics.later()) {
+            return false;
+        }
         if agents.is_empty()
             && let PlantPlace::Rest(wait) = plant.steps[steps].place
         {
@@ -242,7 +249,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
                         bit(&self.excited, other as usize) && reads((plant.inputs + other as usize) as u32)
                     }
                     Mover::Arrival(wire) => reads((plant.nets.len() + wire as usize) as u32),
-                    Mover::Overtaking(..) => false,
+                    Mover::Overtaking(..) | Mover::Apart => false,
                     Mover::Edge(_) => outside::numbers(agent.edges).any(|c| reads(plant.clocks[c].net)),
                     Mover::Step(_) => {
                         let edges = outside::numbers(agent.edges).any(|c| reads(plant.clocks[c].net));
@@ -283,12 +290,15 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         let info = &self.known.infos[firing.key as usize];
         let key = self.found.key(firing.key);
         let step = firing.stepping > 0;
+        let came = key.came() && !step;
         // a step or edge that is due comes before what fires at its instant, or together with others
         let due = |agent: &Agent| agent.opens() && !firing.replaces(agent) && self.work.may_reach(agent.row, agent.min);
         let fired = info.agents.iter().any(due);
         self.opens.clear();
         self.opens.extend((firing.steps..firing.steps + firing.stepping).map(|step| step as u32 + 1));
-        self.opens.extend(outside::numbers(firing.edges).map(|c| plant.clocks[c].base + key.edges(c)));
+        // clocks that only a pattern knows begin no window of what is asked about
+        let edges = outside::numbers(firing.edges).filter(|c| plant.core[plant.clocks[*c].net as usize]);
+        self.opens.extend(edges.map(|c| plant.clocks[c].base + key.edges(c)));
         let window = match self.opens.as_slice() {
             [] => key.window(),
             [.., last] if plant.clocks.is_empty() => *last,
@@ -303,17 +313,18 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             step: step.then_some(firing.steps),
             steps: firing.stepping,
             opens: &self.opens,
-            rested: info.rest,
+            rested: info.core_rest,
             late: firing.movers.iter().any(|mover| matches!(mover, Mover::Late(_))),
             disabled: &self.disabled,
             zone: &self.work,
             row: info.watch_row,
         };
-        let (touches, rested) = (block.touches(), info.rest);
+        let (touches, rested) = (block.touches(), info.core_rest);
         self.hits.clear();
         let hits = &mut self.hits;
         let (state, fates) = self.watch.block(key.watch(), &block, &mut |hit| hits.push(hit));
         let origin = match (touches, rested) {
+            (false, true) if step && key.origin() == NOWHERE => SINCE,
             (false, _) => key.origin(),
             (true, false) => NOWHERE,
             (true, true) => {
@@ -322,6 +333,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             }
         };
         let mut next = KeyMut { words: &mut self.words, layout };
+        next.set_pattern(came, firing.has(Mover::Apart));
         next.set_step(firing.steps + firing.stepping, origin);
         next.set_watch(state, fired);
         next.set_window(window);
@@ -347,7 +359,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
                 Slot::Edge(clock) if firing.edges >> clock & 1 == 1 => None,
                 // the edge that was the last is the one before it now
                 Slot::Cycle(clock) if firing.edges >> clock & 1 == 1 => Some(Slot::Edge(clock)),
-                Slot::Fired => None,
+                Slot::Fired | Slot::Held => None,
                 Slot::Apart(wire) if firing.has(Mover::Arrival(wire)) => None,
                 Slot::Cool(gate) if self.cooling.contains(&gate) => None,
                 Slot::Watch(clock) => match fates[clock as usize] {

@@ -26,6 +26,13 @@ pub enum Goal {
         /// The bounds.
         least: [i64; 2],
     },
+    /// In the last window that touches it the net has no pulse that is shorter than this.
+    Wide {
+        /// The net, by its number in the plant.
+        net: u32,
+        /// The bound, in ticks.
+        least: i64,
+    },
     /// The second edge comes sooner than this after the first.
     Close {
         /// The earlier edge.
@@ -43,6 +50,13 @@ pub enum Goal {
         to: Edge,
         /// The greatest distance, in ticks.
         max: i64,
+    },
+    /// The pattern that the next step waits for does not come.
+    Missed {
+        /// The nets of the pattern, by their number in the plant.
+        nets: Vec<u32>,
+        /// How long after the step before it gives up, in ticks; without, the run ends at rest or goes on for ever.
+        timeout: Option<i64>,
     },
     /// A partial state shows for longer than this.
     Long {
@@ -104,6 +118,15 @@ impl Goal {
                     _ => Vec::new(),
                 }
             }
+            Goal::Wide { net, least } => {
+                let opens = |mover: &Mover| matches!(mover, Mover::Step(_) | Mover::Edge(_));
+                let begin = (0..=last).rev().find(|block| trace[*block].movers.iter().any(opens)).unwrap_or(0);
+                let changes: Vec<usize> =
+                    (begin..=last).filter(|block| walked.change(*net, *block).is_some()).collect();
+                // as wide as the bound is too wide: a tick less is asked for, the run decides
+                let wide = |pair: &[usize]| later(time(pair[0]), time(pair[1]), least - 1);
+                vec![changes.windows(2).map(wide).collect()]
+            }
             Goal::Close { from, to, min } => {
                 // what shows at one instant needs no condition
                 let begin = (0..last).rev().find(|block| walked.has(*from, *block));
@@ -120,6 +143,15 @@ impl Goal {
                     return vec![vec![later(begin, time(last), *max)]];
                 }
                 vec![waiting(&|net| net == to.net).iter().map(|due| later(begin, due, *max)).collect()]
+            }
+            Goal::Missed { nets, timeout } => {
+                let Some(timeout) = timeout else { return vec![Vec::new()] };
+                let steps = |mover: &Mover| matches!(mover, Mover::Step(_));
+                let step = (0..=last).rev().find(|block| trace[*block].movers.iter().any(steps));
+                let end = step.map_or_else(Form::default, |block| time(block).clone()).with(*timeout);
+                let of = |gate: &u32| nets.contains(&((plant.inputs + *gate as usize) as u32));
+                let pending = system.pending.iter().filter(|(gate, _)| of(gate));
+                vec![pending.map(|(_, due)| end.minus(due)).collect()]
             }
             Goal::Long { pattern, longer } => {
                 let shows = |values: &[u64]| pattern.iter().all(|(net, value)| bit(values, *net as usize) == *value);

@@ -108,7 +108,7 @@ fn signals(plant: &Plant, key: Key<'_>, agent: &Agent) -> Vec<(u32, bool)> {
     match agent.mover {
         Mover::Gate(gate) => flipped(plant.inputs + gate as usize),
         Mover::Arrival(wire) => flipped(plant.nets.len() + wire as usize),
-        Mover::Overtaking(..) => Vec::new(),
+        Mover::Overtaking(..) | Mover::Apart => Vec::new(),
         Mover::Step(_) | Mover::Edge(_) => {
             let taken = key.steps();
             let edges = outside::numbers(agent.edges).flat_map(|clock| flipped(plant.clocks[clock].net as usize));

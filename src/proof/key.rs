@@ -30,6 +30,8 @@ pub(super) struct Layout {
 pub(super) const FLIGHTS: u8 = 16;
 
 const FIRED: u64 = 1 << 32;
+const CAME: u64 = 1 << 33;
+const HELD: u64 = 1 << 34;
 /// In the byte of a wire: the time since its last arrival is kept.
 const APART: u8 = 1 << 7;
 
@@ -102,6 +104,18 @@ impl<'a> Key<'a> {
         self.words[self.layout.watch] & FIRED != 0
     }
 
+    /// Has the pattern come that the next step waits for?
+    #[inline]
+    pub fn came(&self) -> bool {
+        self.words[self.layout.watch] & CAME != 0
+    }
+
+    /// Did a batch end with it, so that whatever fires next comes later (but for a step in a batch of its own)?
+    #[inline]
+    pub fn held(&self) -> bool {
+        self.words[self.layout.watch] & HELD != 0
+    }
+
     #[inline]
     pub fn skew(&self) -> u64 {
         self.words[self.layout.skew]
@@ -165,7 +179,15 @@ impl KeyMut<'_> {
 
     #[inline]
     pub fn set_watch(&mut self, state: u32, fired: bool) {
-        self.words[self.layout.watch] = u64::from(state) | if fired { FIRED } else { 0 };
+        let word = &mut self.words[self.layout.watch];
+        *word = *word & (CAME | HELD) | u64::from(state) | if fired { FIRED } else { 0 };
+    }
+
+    /// Sets whether the pattern of the next step has come, and whether a batch ended here.
+    #[inline]
+    pub fn set_pattern(&mut self, came: bool, held: bool) {
+        let word = &mut self.words[self.layout.watch];
+        *word = *word & !(CAME | HELD) | if came { CAME } else { 0 } | if held { HELD } else { 0 };
     }
 
     pub fn set_skew(&mut self, mask: u64) {
@@ -215,8 +237,12 @@ pub(super) enum Slot {
     Edge(u32),
     /// Time since the edge before that.
     Cycle(u32),
+    /// Time since the pattern came that the next step waits for.
+    Came,
     /// Time since something last fired.
     Fired,
+    /// Time since a batch that nothing can join any more.
+    Held,
     /// Time since a gate was disabled that could be excited again at once.
     Cool(u32),
     /// Time since the last arrival on a wire on which the next could be due at once.
@@ -235,6 +261,8 @@ pub enum Mover {
     /// Beside what fires: the change that sets out on this wire would arrive with or before so many of those before it.
     /// They are gone; and so is it if their number is odd.
     Overtaking(u32, u8),
+    /// Beside a step: it comes in a batch of its own, at the instant of the batch that brought its pattern.
+    Apart,
     /// The next step comes; of the inputs that it sets, those of this mask (a bit an entry) change at once.
     Step(u64),
     /// The next edge of a clock (by its number in the plant) comes.
@@ -277,8 +305,12 @@ pub(super) struct Info {
     pub near: Vec<u64>,
     /// The excited gates, a bit a gate.
     pub excited: Vec<u64>,
-    /// Is nothing pending in the circuit?
+    /// How far the clock since the last step may run while the next one waits for its pattern, if there is an end.
+    pub gives_up: Option<(usize, i64)>,
+    /// Is nothing pending in the plant?
     pub rest: bool,
+    /// Is nothing pending in what is asked about?
+    pub core_rest: bool,
     /// Row of the first clock of the watch.
     pub watch_row: usize,
     /// For each row the least delay that its clock waits for (2L + 1), as far as it may count whether that is over and no
@@ -374,13 +406,19 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
     }
     info.rest = info.slots.is_empty() && key.skew() == 0;
     let taken = key.steps();
+    info.core_rest = info.rest || !plant.core.iter().all(|core| *core) && core_rests(plant, key, &info);
     let place = plant.steps.get(taken).map(|step| step.place);
     let skewed = key.skew() != 0;
     let timed = matches!(place, Some(PlantPlace::At(_) | PlantPlace::After(_)));
-    if skewed || timed {
+    let gives_up = match place {
+        Some(PlantPlace::When { timeout, .. }) if !key.came() => timeout,
+        _ => None,
+    };
+    if skewed || timed || gives_up.is_some() {
         info.slots.push(Slot::Since);
     }
     let since = info.slots.len();
+    info.gives_up = gives_up.map(|timeout| (since, timeout));
     if skewed {
         let last = &plant.steps[taken - 1];
         info.limits.push((since, zone::at_most(last.skew)));
@@ -394,9 +432,13 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
     if plant.steps[taken..].iter().any(|step| matches!(step.place, PlantPlace::At(_))) {
         info.slots.push(Slot::Start);
     }
+    if key.came() {
+        info.slots.push(Slot::Came);
+    }
     let timed = match place {
         Some(PlantPlace::After(ticks)) => Some((since, ticks)),
         Some(PlantPlace::At(ticks)) => Some((info.slots.len(), ticks)),
+        Some(PlantPlace::When { wait, .. }) if key.came() => Some((info.slots.len(), wait)),
         _ => None,
     };
     if let Some((row, ticks)) = timed {
@@ -420,6 +462,9 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
     if key.fired() {
         info.slots.push(Slot::Fired);
     }
+    if key.held() {
+        info.slots.push(Slot::Held);
+    }
     if key.any_cools() {
         info.slots.extend((0..plant.gates.len()).filter(|gate| key.cools(*gate)).map(|gate| Slot::Cool(gate as u32)));
     }
@@ -427,6 +472,21 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
     info.watch_row = info.slots.len() + 1;
     info.slots.extend((0..watch_clocks).map(Slot::Watch));
     info
+}
+
+/// Is nothing pending in what is asked about?
+fn core_rests(plant: &Plant, key: Key<'_>, info: &Info) -> bool {
+    let late = |(net, _): &(u32, bool)| plant.core[*net as usize];
+    let last = plant.steps[..key.steps()].last();
+    let moves = last.is_some_and(|step| {
+        step.set.iter().enumerate().any(|(entry, set)| key.skew() >> entry.min(63) & 1 == 1 && late(set))
+    });
+    !moves
+        && info.slots.iter().all(|slot| match *slot {
+            Slot::Gate(gate) => !plant.core[plant.inputs + gate as usize],
+            Slot::Flight(wire, _) => !plant.core[plant.nets.len() + wire as usize],
+            _ => true,
+        })
 }
 
 /// The delay range of a change under way on a wire with so many before it.

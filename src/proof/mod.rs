@@ -19,6 +19,7 @@ mod outcomes;
 mod outside;
 mod padding;
 mod passed;
+mod patterns;
 mod plant;
 mod prove;
 mod race;
@@ -36,7 +37,7 @@ pub mod zone;
 pub use claim::{Call, Claim, Proof, Variation, WindowProof};
 pub use cycles::{Cycle, RestVerdict, comes_to_rest};
 pub use explore::{explore, explore_under};
-pub use explored::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, Rest};
+pub use explored::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE, Rest, SINCE, START};
 pub use key::Mover;
 pub use margin::{Margin, MarginEnd};
 pub use outside::PlantClock;
@@ -49,6 +50,6 @@ pub use semantics::{Exact, Semantics};
 pub use system::{Form, Point, Points, Row, Sense, System, Unknown};
 pub use watch::{Arrival, Block, Fate, Nothing, SAME, Watch};
 pub use watches::{
-    Answered, Apart, BeforeRest, Edge, Late, Moved, Moves, Settles, Shows, ShowsLonger, Swallows, Width,
+    Answered, Apart, BeforeRest, Edge, Late, Moved, Moves, Settles, Shows, ShowsLonger, Swallows, Tolerates, Width,
 };
 pub use witness::{Case, case, one_draw};

@@ -4,9 +4,9 @@ use std::collections::{BTreeMap, BTreeSet};
 
 use super::claim::{Call, Variation};
 use super::evidence::{Least, Trail};
-use super::explored::{Explored, Fired, Mode, NOWHERE, Rest};
+use super::explored::{Explored, Fired, Mode, Rest, START};
 use super::goals::Goal;
-use super::key::bit;
+use super::key::{bit, put};
 use super::outside::Stretch;
 use super::prove::{Prover, Unsaid, World, reached};
 use super::race::Race;
@@ -50,9 +50,15 @@ impl Part {
     /// The states at rest of a window, by the state that it began in.
     fn outcomes(&self, found: &Explored, steps: &Stretch) -> Followed {
         let mut all: Followed = BTreeMap::new();
-        let these = found.rests.iter().filter(|(rest, _)| steps.contains(&rest.steps) && rest.origin != NOWHERE);
+        let these = found.rests.iter().filter(|(rest, _)| steps.contains(&rest.steps) && rest.origin < START);
         for (rest, node) in these {
-            let state = |number: u32| found.states[number as usize].clone();
+            let state = |number: u32| -> Box<[u64]> {
+                let mut values = found.states[number as usize].clone();
+                let plant = &self.world.plant;
+                let others = (0..plant.signals()).filter(|signal| !plant.core[*signal]);
+                others.for_each(|signal| put(&mut values, signal, false));
+                values
+            };
             all.entry(state(rest.origin)).or_default().entry(state(rest.state)).or_insert(*node);
         }
         all
@@ -234,7 +240,7 @@ impl Prover<'_> {
                 for (rest, node) in found.rests.iter().filter(|(rest, _)| steps.contains(&rest.steps)) {
                     let view = |number: u32| allowed.view(&self.whole(&world, &found.states[number as usize]).ones);
                     let power_up = world.plant.power_up && rest.steps == 0;
-                    let before = (rest.origin != NOWHERE && !power_up).then(|| view(rest.origin));
+                    let before = (rest.origin < START && !power_up).then(|| view(rest.origin));
                     let passed = Passed { before: before.as_ref(), coming: &coming, after: &view(rest.state) };
                     match allowed.answer(&passed) {
                         Answer::Allowed => {}

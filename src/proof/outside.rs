@@ -176,6 +176,7 @@ impl Plant {
                 PlantPlace::At(ticks) => ticks,
                 PlantPlace::After(ticks) => Ticks { min: at.min + ticks.min, max: at.max.saturating_add(ticks.max) },
                 PlantPlace::Rest(wait) => Ticks { min: at.min + wait, max: i64::MAX },
+                PlantPlace::When { wait, .. } => Ticks { min: at.min + wait.min, max: i64::MAX },
             };
         }
         at
@@ -189,7 +190,8 @@ impl Plant {
         let mut inputs = self.initial.clone();
         let (mut end, mut idle) = (None, Vec::new());
         for (number, step) in self.steps.iter().enumerate() {
-            let changes = step.set.iter().any(|(net, value)| inputs[*net as usize] != *value);
+            let changes =
+                step.set.iter().any(|(net, value)| self.core[*net as usize] && inputs[*net as usize] != *value);
             step.set.iter().for_each(|(net, value)| inputs[*net as usize] = *value);
             let window = number as u32 + 1;
             if listed && window > start && changes && !self.may_coincide(number) {

@@ -28,9 +28,6 @@ pub enum NotCovered {
     /// A step that bounces.
     #[error("the proof does not know contact bounce: step \"{0}\"")]
     Bounce(String),
-    /// A step that waits for a pattern.
-    #[error("the proof does not know steps that wait for a pattern: \"{0}\"")]
-    When(String),
     /// Gates that begin at X.
     #[error("the proof does not begin with unknown values")]
     UnknownStart,
@@ -86,6 +83,13 @@ pub enum PlantPlace {
     After(Ticks),
     /// This long after rest.
     Rest(i64),
+    /// After the pattern of the step shows.
+    When {
+        /// How long after.
+        wait: Ticks,
+        /// How long after the step before it gives up.
+        timeout: Option<i64>,
+    },
 }
 
 /// One step.
@@ -97,6 +101,8 @@ pub struct PlantStep {
     pub place: PlantPlace,
     /// The inputs that it sets here, by local net.
     pub set: Vec<(u32, bool)>,
+    /// The pattern that it waits for, by local net; empty for other steps.
+    pub pattern: Vec<(u32, bool)>,
     /// How much later than the first the last of its inputs may change.
     pub skew: i64,
     /// With skew: does it set other inputs besides, so that none of these need be the first?
@@ -112,6 +118,9 @@ pub struct Plant {
     pub nets: Vec<NetId>,
     /// How many of the nets are inputs.
     pub inputs: usize,
+    /// For each signal: does it belong to the cone that is asked about, and not only to that of a pattern? Windows and rest
+    /// are judged by these.
+    pub core: Vec<bool>,
     /// The gates; the net of gate g is `inputs + g`.
     pub gates: Vec<PlantGate>,
     /// The wires; the end of wire w is signal `nets.len() + w`.
@@ -140,13 +149,23 @@ fn common(a: u64, b: u64) -> u64 {
 }
 
 impl Plant {
-    /// The cone of these nets, with the whole stimulus. `spans` are times that matter besides, such as bounds of rules: they
+    /// The cone of these nets and of the patterns that steps wait for, with the whole stimulus. `spans` are times that matter besides, such as bounds of rules: they
     /// are whole ticks, too.
     ///
     /// Errors: what the exploration does not cover.
     pub fn of(scenario: &Scenario, of: &[NetId], spans: &[Span]) -> Result<Plant, NotCovered> {
         let (circuit, delays, stimulus) = (&*scenario.circuit, &*scenario.delays, &*scenario.stimulus);
-        let cone: NetSet = circuit.cone(of);
+        let core: NetSet = circuit.cone(of);
+        let mut of = of.to_vec();
+        for (s, step) in stimulus.steps.iter().enumerate() {
+            if let Place::When { pattern, .. } = &step.place {
+                of.extend(pattern.iter().map(|entry| entry.0));
+                // the pattern is looked for once the inputs of the step before have changed
+                let before = s.checked_sub(1).map(|before| &stimulus.steps[before]).filter(|it| it.skew.is_some());
+                of.extend(before.into_iter().flat_map(|step| &step.set).map(|entry| entry.0));
+            }
+        }
+        let cone: NetSet = circuit.cone(&of);
         let nets: Vec<NetId> = cone.iter().collect();
         let local: FxHashMap<NetId, u32> = nets.iter().enumerate().map(|(i, net)| (*net, i as u32)).collect();
         let inputs = nets.iter().filter(|net| circuit.is_input(**net)).count();
@@ -174,7 +193,10 @@ impl Plant {
             match &step.place {
                 Place::At(range) | Place::After(range) => add(*range),
                 Place::Rest(wait) => add(DelayRange::exact(*wait)),
-                Place::When { .. } => return Err(NotCovered::When(step.label.clone())),
+                Place::When { wait, timeout, .. } => {
+                    add(*wait);
+                    add(DelayRange::exact(timeout.unwrap_or_default()));
+                }
             }
             if let Some(skew) = step.skew {
                 if step.set.len() > SKEWED {
@@ -235,7 +257,13 @@ impl Plant {
                 Place::At(it) => PlantPlace::At(range(*it)),
                 Place::After(it) => PlantPlace::After(range(*it)),
                 Place::Rest(wait) => PlantPlace::Rest(ticks(*wait)),
-                Place::When { .. } => unreachable!("refused above"),
+                Place::When { wait, timeout, .. } => {
+                    PlantPlace::When { wait: range(*wait), timeout: timeout.map(ticks) }
+                }
+            },
+            pattern: match &step.place {
+                Place::When { pattern, .. } => pattern.iter().map(|(net, value)| (local[net], *value)).collect(),
+                _ => Vec::new(),
             },
             set: step.set.iter().filter_map(|(net, value)| local.get(net).map(|net| (*net, *value))).collect(),
             skew: step.skew.map_or(0, |skew| ticks(skew.max - skew.min)),
@@ -250,8 +278,11 @@ impl Plant {
         });
         let clocks = clocks.collect();
         let initial = nets[..inputs].iter().map(|net| stimulus.initial[net.index()]).collect();
+        let end = |wire: &WireId| core.contains(circuit.net_of(circuit.wires()[wire.index()].1));
+        let core = nets.iter().map(|net| core.contains(*net)).chain(wires_of.iter().map(end)).collect();
         Ok(Plant {
             tick,
+            core,
             nets,
             inputs,
             gates,
@@ -295,7 +326,8 @@ impl Plant {
     pub fn may_coincide(&self, step: usize) -> bool {
         let Some(before) = step.checked_sub(1).map(|before| self.steps[before].place) else { return false };
         match (self.steps[step].place, before) {
-            (PlantPlace::Rest(_), _) => false,
+            // a batch of its own
+            (PlantPlace::Rest(_) | PlantPlace::When { .. }, _) => false,
             (PlantPlace::After(after), _) => after.min == 0,
             (PlantPlace::At(at), PlantPlace::At(before)) => at.min <= before.max,
             (PlantPlace::At(_), _) => true,
@@ -305,6 +337,20 @@ impl Plant {
     /// Does anything come from outside whose time is not counted from rest?
     pub(super) fn is_timed(&self) -> bool {
         !self.clocks.is_empty() || self.steps.iter().any(|step| !matches!(step.place, PlantPlace::Rest(_)))
+    }
+
+    /// Does this step wait for a pattern, and does that show in these values?
+    pub(super) fn shows_pattern(&self, step: usize, values: &[u64]) -> bool {
+        let step = self.steps.get(step).filter(|step| matches!(step.place, PlantPlace::When { .. }));
+        step.is_some_and(|step| {
+            step.pattern.iter().all(|(net, value)| super::key::bit(values, *net as usize) == *value)
+        })
+    }
+
+    /// Everything is asked about, patterns included.
+    pub(super) fn asks_all(mut self) -> Plant {
+        self.core.fill(true);
+        self
     }
 
     /// Number of signals: nets and wire ends.

@@ -12,7 +12,7 @@ use super::claim::{Call, Claim, Proof, Variation};
 use super::cycles::{RestVerdict, comes_to_rest_within};
 use super::evidence::{Evidence, trails};
 use super::explore::explore;
-use super::explored::{Budget, Ended, Explored, Fired, Merge, Mode, NOWHERE};
+use super::explored::{Budget, Ended, Explored, Fired, Merge, Mode, SINCE, START};
 use super::goals::Goal;
 use super::grouped::grouped;
 use super::key::bit;
@@ -20,14 +20,14 @@ use super::outside::Stretch;
 use super::plant::Plant;
 use super::system::{Points, Sense, System};
 use super::watch::{Nothing, Watch};
-use super::watches::{Answered, Apart, Edge, Late, Moves, Shows, ShowsLonger, Swallows, Width};
+use super::watches::{Answered, Apart, Edge, Late, Moves, Shows, ShowsLonger, Swallows, Tolerates, Width};
 use super::witness::{case, one_draw};
 use crate::circuit::NetId;
 use crate::control::Control;
 use crate::engine::{Program, Trace};
 use crate::findings::{Answers, Asked, Judge, Pattern, Question, RuleKey};
 use crate::instance::{Instance, Which};
-use crate::scenario::{Alternative, Scenario};
+use crate::scenario::{Alternative, Place, Scenario};
 use crate::time::Span;
 
 /// Gates of a cone that may begin at random, at most: every start is explored.
@@ -171,7 +171,12 @@ impl<'a> Prover<'a> {
     }
 
     /// Explores as far as the budget goes, and says why no farther.
-    fn explore_some<W: Watch>(&mut self, world: &World, watch: &W, mode: Mode) -> (Explored, Option<Unsaid>) {
+    pub(super) fn explore_some<W: Watch>(
+        &mut self,
+        world: &World,
+        watch: &W,
+        mode: Mode,
+    ) -> (Explored, Option<Unsaid>) {
         if let Some(spent) = self.spent() {
             return (Explored::nothing(&world.plant), Some(spent));
         }
@@ -288,11 +293,11 @@ impl<'a> Prover<'a> {
 
     fn group(&mut self, rule: RuleKey, index: u32, net: Option<NetId>, questions: &[u32]) -> Result<(), Unsaid> {
         let rules = self.scenario.rules.clone();
-        let not_covered = |reason: &str| Err(Unsaid { call: Call::NotCovered, reason: reason.to_string() });
         match rule {
             RuleKey::Never => {
                 let never = &rules.never[index as usize];
                 let nets: Vec<NetId> = never.state.iter().map(|(net, _)| *net).collect();
+                let nets = if never.longer_than > Span::ZERO { self.while_others_work(nets) } else { nets };
                 let world = self.world(&nets, &[never.longer_than])?;
                 let pattern = local(&world.plant, &never.state);
                 // the state at the start counts, even where the first step comes at that very instant
@@ -312,7 +317,11 @@ impl<'a> Prover<'a> {
             RuleKey::Timing => {
                 let timing = &rules.timing[index as usize];
                 let spans: Vec<Span> = timing.min.into_iter().chain(timing.max).collect();
-                let world = self.world(&[timing.from.net, timing.to.net], &spans)?;
+                let mut nets = vec![timing.from.net, timing.to.net];
+                if timing.max.is_some() {
+                    nets = self.while_others_work(nets);
+                }
+                let world = self.world(&nets, &spans)?;
                 let edge = |spec: &crate::scenario::EdgeSpec| Edge {
                     net: world.plant.local(spec.net).expect("the cone holds its nets"),
                     kind: spec.edge,
@@ -413,9 +422,16 @@ impl<'a> Prover<'a> {
             RuleKey::Reference => self.reference(questions),
             RuleKey::CriticalRace => self.races(questions),
             RuleKey::Oscillation => self.oscillation(questions),
-            RuleKey::When => not_covered("steps that wait for a pattern are not part of the proof yet"),
+            RuleKey::When => self.patterns(questions),
             RuleKey::BeforeRest => self.before_rest(questions),
         }
+    }
+
+    /// The nets that a question must know which asks how long something lasts: a step at rest waits for the whole circuit,
+    /// and not for the cone alone.
+    fn while_others_work(&self, nets: Vec<NetId>) -> Vec<NetId> {
+        let waits = self.scenario.stimulus.steps.iter().any(|step| matches!(step.place, Place::Rest(_)));
+        if waits { self.scenario.circuit.nets().collect() } else { nets }
     }
 
     /// A question about whole runs: any hit breaks it.
@@ -484,26 +500,19 @@ impl<'a> Prover<'a> {
 
     fn glitches(&mut self, index: u32, questions: &[u32]) -> Result<(), Unsaid> {
         let rule = self.scenario.rules.glitch_free[index as usize].clone();
-        let world = self.world(&[rule.net], &[])?;
-        let watch = Moves { net: world.plant.local(rule.net).expect("the cone holds its nets"), most: 2 };
-        let from = self.proof.claims.len();
+        let world = self.world(&[rule.net], &[rule.shorter_than])?;
+        let net = world.plant.local(rule.net).expect("the cone holds its nets");
         let glitch = |_: &Question, steps: &Stretch, hit: u32| {
             let moved = Moves::moved(hit);
             steps.contains(&moved.steps) && moved.count >= 2
         };
-        self.by_window(&world, &watch, questions, &glitch, &reached)?;
-        if rule.shorter_than > Span::ZERO {
-            for claim in &mut self.proof.claims[from..] {
-                if claim.call == Call::Undecided {
-                    claim.call = Call::NotCovered;
-                    claim.reason = Some(
-                        "that glitches shorter than a bound are tolerated is not part of the proof; it can glitch"
-                            .into(),
-                    );
-                }
-            }
+        if rule.shorter_than == Span::ZERO {
+            let watch = Moves { net, most: 2, from: None };
+            return self.by_window(&world, &watch, questions, &glitch, &reached);
         }
-        Ok(())
+        let shorter = world.plant.ticks(rule.shorter_than);
+        let goal = move |_: &Plant, _: &Question| Goal::Wide { net, least: shorter };
+        self.by_window(&world, &Tolerates { net, shorter }, questions, &glitch, &goal)
     }
 
     fn edges(&mut self, questions: &[u32]) -> Result<(), Unsaid> {
@@ -518,7 +527,8 @@ impl<'a> Prover<'a> {
                 self.unsaid(&[*question], &Unsaid { call: Call::NotCovered, reason });
                 continue;
             }
-            let watch = Moves { net: world.plant.local(count.net).expect("the cone holds its nets"), most };
+            let from = Some(self.steps_of(&world.plant, *question).start);
+            let watch = Moves { net: world.plant.local(count.net).expect("the cone holds its nets"), most, from };
             let wrong = |_: &Question, steps: &Stretch, hit: u32| {
                 let moved = Moves::moved(hit);
                 steps.contains(&moved.steps) && !(count.least..=count.most).contains(&moved.count)
@@ -556,13 +566,15 @@ impl<'a> Prover<'a> {
         good: &dyn Fn(&Plant, &[u64], u32) -> bool,
     ) -> Result<(), Unsaid> {
         let world = self.world(nets, &[])?;
+        // what is expected of a step begins with it, even if it changes nothing
+        let own = questions.iter().any(|question| self.asked.questions[*question as usize].rule == RuleKey::Expect);
+        let latest = if own { SINCE } else { START };
         let ranges: Vec<(u32, Stretch)> =
             questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
         let bad = |found: &Explored, steps: &Stretch| -> Vec<(u32, super::explored::Rest)> {
             let all = found.rests.iter().filter(|(rest, _)| {
-                let begins = rest.steps == 0 && steps.start == 0;
                 steps.contains(&rest.steps)
-                    && (rest.origin != NOWHERE || begins)
+                    && rest.origin <= latest
                     && !good(&world.plant, &found.states[rest.state as usize], rest.origin)
             });
             all.map(|(rest, node)| (*node, *rest)).collect()

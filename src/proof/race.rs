@@ -34,9 +34,8 @@ impl Quantity {
             Quantity::Gate(gate, edges) => scenario.delays.gate[gate.index()][edge(edges)],
             Quantity::Wire(wire, edges) => scenario.delays.wire[wire.index()][edge(edges)],
             Quantity::Place(step) => match &scenario.stimulus.steps[step as usize].place {
-                Place::At(range) | Place::After(range) => *range,
+                Place::At(range) | Place::After(range) | Place::When { wait: range, .. } => *range,
                 Place::Rest(wait) => DelayRange::exact(*wait),
-                Place::When { .. } => DelayRange::default(),
             },
             Quantity::First(clock) => scenario.stimulus.clocks[clock as usize].first,
             Quantity::Period(clock) => scenario.stimulus.clocks[clock as usize].period,

@@ -23,9 +23,17 @@ pub trait Semantics {
         zone::strictly(limit)
     }
     /// The bound on the constant less a clock that must have run for a while: a step after what fired before it, an
-    /// arrival after the one before it, a late input after its step.
+    /// arrival after the one before it, a late input after its step, what fires after a batch that brought a pattern.
     fn later(&self) -> zone::Code {
         zone::BELOW_ZERO
+    }
+    /// May a step come at the instant at which its pattern came, in a batch of its own?
+    fn follows(&self) -> bool {
+        true
+    }
+    /// Is a pattern looked for between the parts of a batch, too?
+    fn peeks(&self) -> bool {
+        false
     }
     /// Must a gate that was disabled stay so for a while, if what could excite it again could have come together with
     /// what disabled it?

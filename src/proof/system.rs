@@ -149,6 +149,10 @@ struct Walk<'a> {
     excited: Vec<u32>,
     launched: Vec<u32>,
     step_time: Form,
+    /// When the pattern came that the next step waits for.
+    came: Option<Form>,
+    /// The last block, if its batch goes on since the pattern that shows after it has not come.
+    goes_on: Option<usize>,
     /// Edges of each clock that have come.
     edges: Vec<u32>,
     /// The block of the last step or edge.
@@ -190,6 +194,8 @@ impl System {
             excited: vec![0; plant.gates.len()],
             launched: vec![0; plant.wires.len()],
             step_time: Form::default(),
+            came: plant.shows_pattern(0, start).then(Form::default),
+            goes_on: None,
             edges: vec![0; plant.clocks.len()],
             opened: None,
             last: vec![None; plant.signals()],
@@ -200,6 +206,11 @@ impl System {
         }
         for (number, block) in trace.iter().enumerate() {
             walk.block(number, block);
+        }
+        if let Some(end) = walk.system.times.last().cloned()
+            && let (None, Some(gives_up)) = (&walk.came, walk.gives_up())
+        {
+            walk.system.push(end.minus(&gives_up), Sense::AtMost);
         }
         // edges that the trace does not hold come later
         if let Some(end) = walk.system.times.last().cloned() {
@@ -323,13 +334,17 @@ impl Walk<'_> {
                 self.due(gate, &since)
             }
             Mover::Arrival(wire) => self.arrives(wire, 0),
-            Mover::Overtaking(..) => unreachable!("it comes with the change that sets out"),
+            Mover::Overtaking(..) | Mover::Apart => unreachable!("it is part of another"),
             Mover::Edge(clock) => self.edge_time(clock),
             Mover::Step(_) => {
                 let place = Unknown::Place(step as u32);
                 match self.plant.steps[step].place {
                     PlantPlace::At(range) => Form::default().plus(self.unknown(place, 0, range)),
                     PlantPlace::After(range) => before.plus(self.unknown(place, 0, range)),
+                    PlantPlace::When { wait, .. } => {
+                        let came = self.came.clone().unwrap_or_default();
+                        came.plus(self.unknown(place, 0, wait))
+                    }
                     PlantPlace::Rest(wait) => {
                         // rest begins with the last event
                         let rest =
@@ -377,6 +392,36 @@ impl Walk<'_> {
         time
     }
 
+    /// When the next step gives up waiting for its pattern, if it does.
+    fn gives_up(&self) -> Option<Form> {
+        match self.plant.steps.get(self.steps)?.place {
+            PlantPlace::When { timeout, .. } => timeout.map(|timeout| self.step_time.clone().with(timeout)),
+            _ => None,
+        }
+    }
+
+    /// Has the pattern come that the next step waits for? Then the batch ends, and what could alter it comes later.
+    fn look(&mut self, number: usize, block: &Fired, time: &Form) {
+        let plant = self.plant;
+        if !block.came {
+            let shows = plant.shows_pattern(self.steps, &block.values);
+            let late = block.movers.iter().any(|mover| matches!(mover, Mover::Late(_) | Mover::Step(_)));
+            self.goes_on = (shows && !late).then_some(number);
+            return;
+        }
+        if let Some(gives_up) = self.gives_up() {
+            self.system.push(time.minus(&gives_up), Sense::AtMost);
+        }
+        for &(net, _) in &plant.steps[self.steps].pattern {
+            let Some(gate) = (net as usize).checked_sub(plant.inputs) else { continue };
+            if let Some(since) = self.since[gate].clone().filter(|_| excited(plant, &block.values, gate)) {
+                let due = self.due(gate as u32, &since);
+                self.system.push(time.minus(&due), Sense::Below);
+            }
+        }
+        self.came = Some(time.clone());
+    }
+
     /// A change sets out on a wire, and removes so many of those before it.
     fn sets_out(&mut self, wire: u32, rises: bool, over: usize, time: &Form) {
         let range = self.plant.wires[wire as usize].delay[usize::from(rises)];
@@ -406,7 +451,8 @@ impl Walk<'_> {
         let mut time: Option<Form> = None;
         // steps of one instant come one after the other
         let (mut taken, mut before) = (self.steps, self.step_time.clone());
-        for mover in block.movers.iter().filter(|mover| !matches!(mover, Mover::Overtaking(..))) {
+        let own = block.movers.contains(&Mover::Apart);
+        for mover in block.movers.iter().filter(|mover| !matches!(mover, Mover::Overtaking(..) | Mover::Apart)) {
             let due = self.mover_time(number, *mover, taken, &before);
             if matches!(mover, Mover::Step(_)) {
                 taken += 1;
@@ -418,6 +464,12 @@ impl Walk<'_> {
             }
         }
         let time = time.unwrap_or_default();
+        if let (true, Some(came)) = (own, &self.came) {
+            self.system.push(time.minus(came), Sense::Equal);
+        }
+        if let Some(before) = self.goes_on.take() {
+            self.system.push(time.minus(&self.system.times[before]), Sense::Equal);
+        }
         let edged = block.movers.iter().any(|mover| matches!(mover, Mover::Edge(_)));
         let step = taken > self.steps || edged;
         let rests = step && taken > self.steps && matches!(plant.steps[self.steps].place, PlantPlace::Rest(_));
@@ -440,6 +492,12 @@ impl Walk<'_> {
                     plant.gates[gate].reads.iter().for_each(|read| see(read.0 as usize));
                 }
             }
+            // what a step waits for is like a gate that reads its pattern
+            let pattern = plant.steps.get(self.steps).map_or(&[][..], |step| &step.pattern);
+            let late = block.movers.iter().any(|mover| matches!(mover, Mover::Late(_)));
+            if late || pattern.iter().any(|entry| changed.contains(&(entry.0 as usize))) {
+                pattern.iter().for_each(|entry| see(entry.0 as usize));
+            }
         }
         earlier.sort_unstable();
         earlier.dedup();
@@ -447,7 +505,7 @@ impl Walk<'_> {
             let form = self.system.times[before].minus(&time);
             // a sum of delays less a part of itself needs no condition
             if form.constant > 0 || form.terms.iter().any(|term| term.1 > 0) || form.terms.is_empty() {
-                self.system.push(form, Sense::Below);
+                self.system.push(form, if own { Sense::AtMost } else { Sense::Below });
             }
         }
         // what pends and hears of it, or must wait for the step
@@ -470,7 +528,7 @@ impl Walk<'_> {
                 }
                 Mover::Gate(gate) => self.since[gate as usize] = None,
                 Mover::Edge(clock) => self.edges[clock as usize] += 1,
-                Mover::Overtaking(..) | Mover::Step(_) | Mover::Late(_) => {}
+                Mover::Overtaking(..) | Mover::Apart | Mover::Step(_) | Mover::Late(_) => {}
             }
         }
         if step {
@@ -479,6 +537,10 @@ impl Walk<'_> {
         if taken > self.steps {
             self.step_time = time.clone();
             self.steps = taken;
+            self.came = None;
+        }
+        if self.came.is_none() {
+            self.look(number, block, &time);
         }
         for signal in &changed {
             put(&mut self.values, *signal, bit(&block.values, *signal));

@@ -25,6 +25,9 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             let late = self.found.key(key).skew();
             movers.extend((0..64).filter(|entry| late >> entry & 1 == 1).map(Mover::Late));
         }
+        if agents.first().is_some_and(|agent| agent.row == 0) {
+            movers.push(Mover::Apart);
+        }
         movers.extend(agents.iter().filter(|agent| !agent.opens()).map(|agent| agent.mover));
         let edges = opening.map_or(0, |agent| agent.edges);
         movers.extend(outside::numbers(edges).map(|clock| Mover::Edge(clock as u32)));
@@ -131,7 +134,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             match *mover {
                 Mover::Gate(gate) => flip(&mut self.words, plant.inputs + gate as usize),
                 Mover::Arrival(wire) => flip(&mut self.words, plant.nets.len() + wire as usize),
-                Mover::Overtaking(..) => {}
+                Mover::Overtaking(..) | Mover::Apart => {}
                 Mover::Edge(clock) => flip(&mut self.words, plant.clocks[clock as usize].net as usize),
                 Mover::Step(mask) => {
                     let mut waits = 0;

@@ -31,7 +31,7 @@ pub struct Block<'a> {
     pub steps: usize,
     /// The windows of the steps and edges in it, first first; see [`Rest`](super::Rest).
     pub opens: &'a [u32],
-    /// Did nothing pend in the circuit before it?
+    /// Did nothing pend in what is asked about before it?
     pub rested: bool,
     /// Do inputs change in it, of a step that came before?
     pub late: bool,
@@ -62,7 +62,7 @@ impl Block<'_> {
         steps.iter().enumerate().any(|(at, step)| {
             step.set.iter().any(|(net, value)| {
                 let again = steps[at + 1..].iter().any(|later| later.set.iter().any(|set| set.0 == *net));
-                !again && super::key::bit(self.before, *net as usize) != *value
+                self.plant.core[*net as usize] && !again && super::key::bit(self.before, *net as usize) != *value
             })
         })
     }
@@ -75,7 +75,7 @@ pub struct Arrival<'a> {
     pub plant: &'a Plant,
     /// Values of the signals, a bit a signal.
     pub values: &'a [u64],
-    /// Does nothing pend in the circuit?
+    /// Does nothing pend in what is asked about?
     pub rest: bool,
     /// The window; see [`Rest`](super::Rest).
     pub window: u32,

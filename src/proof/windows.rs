@@ -1,5 +1,7 @@
 //! What is known of whole windows: states at rest and settling times, over all delays.
 
+use std::collections::BTreeSet;
+
 use super::claim::WindowProof;
 use super::cycles::RestVerdict;
 use super::explored::Mode;
@@ -57,7 +59,8 @@ impl Prover<'_> {
     }
 
     fn part(&mut self, circuit: &Circuit, nets: &[NetId], windows: &mut [Window]) -> Result<(), Unsaid> {
-        let world = self.world(nets, &[])?;
+        let mut world = self.world(nets, &[])?;
+        world.plant = world.plant.asks_all();
         let found = self.explore(&world, &Nothing, Mode::default())?;
         for (taken, window) in windows.iter_mut().enumerate() {
             let mut states: Vec<State> = Vec::new();
@@ -72,7 +75,7 @@ impl Prover<'_> {
                     states.push(state);
                 }
             }
-            window.join(states);
+            window.join(states, &world.plant.nets);
         }
         // without an end there is no greatest settling time; what takes exactly equal times is left out
         let (verdict, open) = self.comes_to_rest(&world);
@@ -107,13 +110,19 @@ impl Prover<'_> {
 struct Window {
     /// States, all nets; `None` before the first part, `Some(None)` where there are too many.
     states: Option<Option<Vec<State>>>,
+    /// The nets that these parts hold.
+    nets: BTreeSet<NetId>,
     /// Least and greatest settling time, and whether the greatest is only come near to.
     settling: Option<Option<(Span, Span, bool)>>,
     ties: bool,
 }
 
 impl Window {
-    fn join(&mut self, states: Vec<State>) {
+    fn join(&mut self, states: Vec<State>, nets: &[NetId]) {
+        // parts share what a pattern depends on
+        let both: Vec<NetId> = nets.iter().copied().filter(|net| self.nets.contains(net)).collect();
+        let fit = |(a, b): &(&State, &State)| both.iter().all(|net| a.get(net.index()) == b.get(net.index()));
+        self.nets.extend(nets);
         self.states = Some(match self.states.take() {
             None => Some(states),
             Some(None) => None,
@@ -122,14 +131,14 @@ impl Window {
                 None
             }
             Some(Some(all)) => {
-                let both = |(a, b): (&State, &State)| {
+                let sum = |(a, b): (&State, &State)| {
                     let mut state = a.clone();
                     for net in b.ones.ones() {
                         state.set(net, true.into());
                     }
                     state
                 };
-                Some(all.iter().flat_map(|a| states.iter().map(move |b| (a, b))).map(both).collect())
+                Some(all.iter().flat_map(|a| states.iter().map(move |b| (a, b))).filter(fit).map(sum).collect())
             }
         });
     }

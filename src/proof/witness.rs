@@ -101,7 +101,7 @@ pub fn case(
     let movers = trace.iter().flat_map(|block| &block.movers);
     let reached = movers.filter(|mover| matches!(mover, Mover::Step(_))).count();
     for (step, place) in scenario.stimulus.steps.iter().zip(&mut instance.places).skip(reached) {
-        if let Place::At(range) | Place::After(range) = &step.place {
+        if let Place::At(range) | Place::After(range) | Place::When { wait: range, .. } = &step.place {
             *place = range.max;
         }
     }

@@ -119,7 +119,7 @@ pub struct Seen {
     pub cycle: bool,
     /// Is there one in which no two events ever fall together?
     pub cycle_apart: bool,
-    /// Steps (by number) that never came.
+    /// Steps (by number, from 0) that never came.
     pub never_came: BTreeSet<u32>,
     pub states: usize,
 }
@@ -257,9 +257,7 @@ impl Grid {
                 begun.push(runs.looked(runs.placed(&state)));
             }
             for state in begun {
-                if !runs.comes_now(&state) {
-                    runs.note(&state);
-                }
+                runs.note(&state);
                 numbers.entry(state.clone()).or_insert_with(|| {
                     states.push(state);
                     states.len() as u32 - 1
@@ -277,9 +275,7 @@ impl Grid {
             let mut to = Vec::with_capacity(next.len());
             for (state, joint) in next {
                 let number = *numbers.entry(state).or_insert_with_key(|state| {
-                    if !runs.comes_now(state) {
-                        runs.note(state);
-                    }
+                    runs.note(state);
                     states.push(state.clone());
                     states.len() as u32 - 1
                 });
@@ -375,17 +371,8 @@ impl Runs<'_> {
             }
         }
         if state.over {
-            self.seen.never_came.insert(steps);
+            self.seen.never_came.insert(u32::from(state.next));
         }
-    }
-
-    /// Does the next step, a timed one, come at this very instant, in the batch of the start?
-    fn comes_now(&self, state: &State) -> bool {
-        let timed = matches!(
-            self.grid.steps.get(state.next as usize).map(|step| &step.place),
-            Some(GridPlace::At(0, 0) | GridPlace::After(0, 0))
-        );
-        timed && state.next == 0 && state.fresh
     }
 
     /// The range of the time that the place of the next step counts, where it counts one by now.
@@ -422,6 +409,8 @@ impl Runs<'_> {
             false => event.1,
         };
         let pending = state.due.iter().map(soon).chain(state.late.iter().map(|late| late.1));
+        let alone = state.fresh
+            && matches!(self.grid.steps.get(state.next as usize).map(|step| &step.place), Some(GridPlace::When(..)));
         let step = self.window(&state).map(|(lo, _)| match state.fresh && state.wait >= lo {
             true => 0,
             false => lo.saturating_sub(state.wait).max(1),
@@ -465,7 +454,9 @@ impl Runs<'_> {
         // what must come now, and what may
         let mut must: Vec<usize> = Vec::new();
         let mut may: Vec<usize> = Vec::new();
-        for (at, event) in state.due.iter().enumerate() {
+        // a batch that brought the pattern has ended: the step comes in one of its own
+        let own = soonest == 0 && alone;
+        for (at, event) in state.due.iter().enumerate().filter(|_| !own) {
             if event.0 as usize >= gates {
                 if event.1 == 0 {
                     must.push(at);
@@ -485,7 +476,7 @@ impl Runs<'_> {
             }
         }
         const EDGE: usize = 98;
-        if let Some((lo, hi)) = self.edge(&state) {
+        if let Some((lo, hi)) = self.edge(&state).filter(|_| !own) {
             match state.tick {
                 tick if tick == hi => must.push(EDGE),
                 tick if tick >= lo => may.push(EDGE),

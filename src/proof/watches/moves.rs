@@ -14,6 +14,8 @@ pub struct Moves {
     pub net: u32,
     /// Counts above this are told from each other no more.
     pub most: u32,
+    /// The window that begins with its own step, whether it touches the net or not.
+    pub from: Option<u32>,
 }
 
 /// Where a window came to rest: `hit` numbers of [`Moves`].
@@ -54,7 +56,7 @@ impl Watch for Moves {
 
     fn block(&self, state: u32, block: &Block<'_>, _hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
         let mut state = state;
-        if block.touches() {
+        if block.touches() || self.from.is_some_and(|window| block.opens.contains(&window)) {
             let before = if bit(block.before, self.net as usize) { Self::BEFORE } else { 0 };
             state = before | if block.rested { Self::JUDGED } else { 0 };
         }
