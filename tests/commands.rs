@@ -50,6 +50,7 @@ fn the_main_job_on_the_demonstration_leaves_its_files() {
         "waves-typical.vcd",
         "settling.svg",
         "settling.csv",
+        "settling-figures.csv",
         "shares.svg",
         "shares.csv",
         "outcomes.csv",

@@ -306,6 +306,7 @@ fn the_files_of_a_review() {
         "refuted-1.toml",
         "settling.svg",
         "settling.csv",
+        "settling-figures.csv",
         "shares.svg",
         "shares.csv",
         "outcomes.csv",
@@ -427,6 +428,7 @@ fn settling_chart() {
     let report = results::sweep(&scenario, &Asked::of(&scenario));
     golden("settling.svg", &charts::settling(&scenario, &report));
     golden("settling.csv", &tables::settling(&scenario, &report));
+    golden("settling-figures.csv", &tables::settling_figures(&scenario, &report, None));
 }
 
 #[test]

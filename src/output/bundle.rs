@@ -177,6 +177,7 @@ fn of_searched(
     let mut bundle = Bundle::default();
     bundle.add("settling.svg", charts::settling_with(scenario, report, proof));
     bundle.add("settling.csv", tables::settling(scenario, report));
+    bundle.add("settling-figures.csv", tables::settling_figures(scenario, report, proof));
     bundle.add("shares.svg", shares::svg(scenario, asked, report));
     bundle.add("shares.csv", shares::csv(scenario, asked, report));
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));

@@ -12,6 +12,7 @@ pub mod charts;
 pub mod convergence;
 mod deciding;
 pub mod dump;
+mod far;
 pub mod flow_map;
 pub mod flow_tables;
 mod flow_words;

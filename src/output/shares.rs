@@ -85,6 +85,11 @@ fn rows<'a>(scenario: &Scenario, asked: &Asked, condition: &'a str, report: &Swe
     rows
 }
 
+/// Is there any row for the file's own delays?
+pub(super) fn has_rows(report: &SweepReport) -> bool {
+    !report.findings.is_empty() || report.at_most.is_some() || report.unseen.is_some()
+}
+
 /// `static-0 glitch, green, both let go`.
 pub(super) fn title(scenario: &Scenario, asked: &Asked, subject: &Subject) -> String {
     let named = words::subject(scenario, asked, subject);
