@@ -5,8 +5,9 @@ use plotters::prelude::*;
 use plotters::style::text_anchor::{HPos, Pos, VPos};
 
 use crate::output::far::Far;
+use crate::output::fitted::Fitted;
 use crate::output::ink;
-use crate::output::measure::{cut_end, width};
+use crate::output::measure::width;
 use crate::output::words;
 use crate::proof::Proof;
 use crate::scenario::Scenario;
@@ -47,17 +48,18 @@ pub fn settling_with(scenario: &Scenario, report: &SweepReport, proof: Option<&P
     let shown = &panels[..panels.len().min(MOST_PANELS)];
     let rows = shown.len().div_ceil(2) as u32;
     let size = (2 * PANEL.0, HEAD + rows.max(1) * PANEL.1 + if panels.len() > shown.len() { 24 } else { 4 });
-    let mut svg = String::new();
+    let (mut svg, mut texts) = (String::new(), Fitted::default());
     {
         let root = SVGBackend::with_string(&mut svg, size).into_drawing_area();
-        draw(&root, scenario, report, proof, shown, &panels[shown.len()..]).expect("drawing into memory");
+        draw(&root, &mut texts, scenario, report, proof, shown, &panels[shown.len()..]).expect("drawing into memory");
     }
     let alternative = alternative(scenario, shown, proof);
-    svg.replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
+    texts.titled(svg).replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
 }
 
 fn draw(
     root: &Area<'_>,
+    texts: &mut Fitted,
     scenario: &Scenario,
     report: &SweepReport,
     proof: Option<&Proof>,
@@ -66,15 +68,15 @@ fn draw(
 ) -> Drawn {
     root.fill(&WHITE)?;
     let draws = words::count(report.samples);
-    let title = words::clean(&format!("{}: settling time (Monte Carlo, {draws} draws)", scenario.title));
-    let title = cut_end(&title, 14.0, (2.0 * f64::from(PANEL.0) - 24.0) / 1.15).unwrap_or(title);
+    let title = format!("{}: settling time (Monte Carlo, {draws} draws)", scenario.title);
+    let title = texts.end(&title, 14.0, (2.0 * f64::from(PANEL.0) - 24.0) / 1.15);
     let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
     root.draw(&Text::new(title, (12, 8), bold))?;
     for (i, (window, settling)) in shown.iter().enumerate() {
         let (column, row) = (i as u32 % 2, i as u32 / 2);
         let corner = ((column * PANEL.0) as i32, (HEAD + row * PANEL.1) as i32);
         let area = root.clone().shrink(corner, PANEL);
-        panel(&area, scenario, proof, window, settling)?;
+        panel(&area, texts, scenario, proof, window, settling)?;
     }
     if shown.is_empty() {
         root.draw(&Text::new("No window settled.", (12, HEAD as i32), small()))?;
@@ -82,7 +84,7 @@ fn draw(
     if !left_out.is_empty() {
         let steps: Vec<&str> = left_out.iter().filter_map(|it| words::step(scenario, Some(it.0.moment))).collect();
         let note = format!("Left out, but in settling.csv: {}", steps.join(", "));
-        let note = cut_end(&note, ink::SMALL, 2.0 * f64::from(PANEL.0) - 24.0).unwrap_or(note);
+        let note = texts.end(&note, ink::SMALL, 2.0 * f64::from(PANEL.0) - 24.0);
         let y = HEAD + (shown.len().div_ceil(2) as u32) * PANEL.1 + 4;
         root.draw(&Text::new(note, (12, y as i32), small()))?;
     }
@@ -92,6 +94,7 @@ fn draw(
 /// One histogram.
 fn panel(
     area: &Area<'_>,
+    texts: &mut Fitted,
     scenario: &Scenario,
     proof: Option<&Proof>,
     window: &WindowReport,
@@ -112,13 +115,14 @@ fn panel(
     let digits = digits(&range);
     let tallest = bars.iter().map(|bar| bar.2).max().unwrap_or(1);
 
-    let label = words::clean(words::step(scenario, Some(window.moment)).unwrap_or_default());
-    let caption = cut_end(&label, ink::BODY, f64::from(PANEL.0) - 60.0).unwrap_or(label);
+    let label = words::step(scenario, Some(window.moment)).unwrap_or_default();
+    let caption = texts.end(label, ink::BODY, f64::from(PANEL.0) - 80.0);
     area.draw(&Text::new(caption, (70, 0), ("sans-serif", ink::BODY * 1.24).into_font().color(&rgb(ink::INK))))?;
     let mut chart = ChartBuilder::on(area)
         .margin_top(18 + 14 * marks.len() as u32)
         .margin_right(16 + far.width())
         .margin_left(10)
+        .margin_bottom(8)
         .set_label_area_size(LabelAreaPosition::Left, 60)
         .set_label_area_size(LabelAreaPosition::Bottom, 42)
         .build_cartesian_2d(range, 0.0..tallest as f64 * 1.05)?;

@@ -9,7 +9,7 @@ use crate::sweep::Settling;
 use crate::time::Span;
 
 /// A line is far where it is so many times as far from the earliest window as the last bar of the common width.
-const FAR: u128 = 5;
+const FAR: u128 = 8;
 /// Room for the break and for what is said of it, pixels.
 const BREAK: u32 = 44;
 /// Room for each line behind it, pixels.

@@ -6,8 +6,8 @@ use plotters::style::text_anchor::{HPos, Pos, VPos};
 use crate::findings::{Asked, Subject};
 use crate::output::charts::{Area, Drawn, HEAD, rgb, small};
 use crate::output::convergence::{stretch, ticks};
+use crate::output::fitted::Fitted;
 use crate::output::ink;
-use crate::output::measure::{cut_end, cut_middle};
 use crate::output::tables;
 use crate::output::words::{self, six};
 use crate::scenario::{Condition, Scenario};
@@ -20,9 +20,9 @@ const WIDE: u32 = 1000;
 /// Height of a row, pixels.
 const ROW: u32 = 20;
 /// Left and right end of the axis, pixels.
-const AXIS: (f64, f64) = (360.0, 800.0);
-/// Height of axis and notes, pixels.
-const FOOT: u32 = 86;
+const AXIS: (f64, f64) = (360.0, 760.0);
+/// Height of axis and notes, pixels; of a note on what is left out.
+const FOOT: (u32, u32) = (72, 15);
 
 /// What is known of how often something comes.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -181,21 +181,23 @@ pub fn csv(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
 }
 
 /// Shares of the sweep with the file's own delays, with their 95 % intervals on a log axis: one row a finding, worst first,
-/// at most [`MOST_ROWS`]; a sentence says how many are left out. What no draw shows has no dot: an open end at the left, and
+/// at most [`MOST_ROWS`]; a sentence says how many are left out. A name
+/// without room is cut and has the whole as its title. What no draw shows has no dot: an open end at the left, and
 /// a bar where its share may end. [`csv()`] has the numbers.
 pub fn svg(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
     let all = rows(scenario, asked, Condition::NOMINAL, report);
     let shown = &all[..all.len().min(MOST_ROWS)];
-    let size = (WIDE, HEAD + shown.len().max(1) as u32 * ROW + FOOT);
-    let mut svg = String::new();
+    let size =
+        (WIDE, HEAD + shown.len().max(1) as u32 * ROW + FOOT.0 + if all.len() > shown.len() { FOOT.1 } else { 0 });
+    let (mut svg, mut texts) = (String::new(), Fitted::default());
     {
         let root = SVGBackend::with_string(&mut svg, size).into_drawing_area();
-        draw(&root, scenario, report, shown, all.len() - shown.len()).expect("drawing into memory");
+        draw(&root, &mut texts, scenario, report, shown, all.len() - shown.len()).expect("drawing into memory");
     }
     let each: Vec<String> = shown.iter().map(|row| format!("{}: {}", row.label, told(row))).collect();
     let said = if each.is_empty() { "Nothing was found".to_string() } else { each.join("; ") };
     let alternative = maud::html! { (words::clean(&format!("Shares of {}. {said}.", unit(report)))) }.into_string();
-    svg.replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
+    texts.titled(svg).replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
 }
 
 /// The figure in words, beside the row.
@@ -213,7 +215,14 @@ fn told(row: &Row<'_>) -> String {
     }
 }
 
-fn draw(root: &Area<'_>, scenario: &Scenario, report: &SweepReport, shown: &[Row<'_>], left_out: usize) -> Drawn {
+fn draw(
+    root: &Area<'_>,
+    texts: &mut Fitted,
+    scenario: &Scenario,
+    report: &SweepReport,
+    shown: &[Row<'_>],
+    left_out: usize,
+) -> Drawn {
     root.fill(&WHITE)?;
     let room = f64::from(WIDE) - 24.0;
     let head = format!(
@@ -222,8 +231,7 @@ fn draw(root: &Area<'_>, scenario: &Scenario, report: &SweepReport, shown: &[Row
         unit(report),
         words::count(report.samples)
     );
-    let head = words::clean(&head);
-    let head = cut_end(&head, 14.0, room / 1.15).unwrap_or(head);
+    let head = texts.end(&head, 14.0, room / 1.15);
     let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
     root.draw(&Text::new(head, (12, 8), bold))?;
     if shown.is_empty() {
@@ -267,7 +275,7 @@ fn draw(root: &Area<'_>, scenario: &Scenario, report: &SweepReport, shown: &[Row
     root.draw(&Text::new(axis, ((x0 + x1) / 2, bottom + 24), side(HPos::Center, VPos::Top)))?;
     for (n, row) in shown.iter().enumerate() {
         let y = (HEAD + n as u32 * ROW + ROW / 2) as i32;
-        one(root, row, y, (x0, x1), &place)?;
+        one(root, texts, row, y, (x0, x1), &place)?;
     }
     let mut notes = vec![
         "Dot: share of what was seen (ring: breaks no rule); bar: 95 % interval; arrow to the left: seen in none, and no more \
@@ -278,19 +286,26 @@ fn draw(root: &Area<'_>, scenario: &Scenario, report: &SweepReport, shown: &[Row
         notes.push(&more);
     }
     for (line, note) in notes.iter().enumerate() {
-        let note = cut_end(note, ink::SMALL, room).unwrap_or(note.to_string());
+        let note = texts.end(note, ink::SMALL, room);
         root.draw(&Text::new(note, (12, bottom + 44 + 15 * line as i32), small()))?;
     }
     root.present()
 }
 
 /// Label, marks and words of one row.
-fn one(root: &Area<'_>, row: &Row<'_>, y: i32, (x0, x1): (i32, i32), place: &dyn Fn(f64) -> i32) -> Drawn {
+fn one(
+    root: &Area<'_>,
+    texts: &mut Fitted,
+    row: &Row<'_>,
+    y: i32,
+    (x0, x1): (i32, i32),
+    place: &dyn Fn(f64) -> i32,
+) -> Drawn {
     let side = |h| small().pos(Pos::new(h, VPos::Center));
-    let label = words::clean(&row.label);
-    let label = cut_middle(&label, ink::SMALL, AXIS.0 - 30.0).unwrap_or(label);
+    let label = texts.middle(&row.label, ink::SMALL, AXIS.0 - 30.0);
     root.draw(&Text::new(label, (x0 - 12, y), side(HPos::Right)))?;
-    root.draw(&Text::new(told(row), (x1 + 12, y), side(HPos::Left)))?;
+    let told = texts.end(&told(row), ink::SMALL, f64::from(WIDE) - AXIS.1 - 20.0);
+    root.draw(&Text::new(told, (x1 + 12, y), side(HPos::Left)))?;
     let ink = rgb(if row.breaks_rule { ink::FINDING } else { ink::INK });
     let line = |from: i32, to: i32| PathElement::new(vec![(from, y), (to, y)], ink.stroke_width(2));
     let end = |x: i32| PathElement::new(vec![(x, y - 4), (x, y + 4)], ink.stroke_width(1));

@@ -68,7 +68,7 @@ fn what_decides(told: &Told<'_>) -> Markup {
     let Some(picture) = sensitivity::svg(told.scenario, told.review) else { return html! {} };
     html! {
         h3 { "Which delays decide" }
-        p { "Over all draws that were compared, not in one case: of all pairs of a failing and a passing draw, the share in \
+        p.leads { "Over all draws that were compared, not in one case: of all pairs of a failing and a passing draw, the share in \
             which the failing one has the greater value less the share in which it has the lesser. What must be neither long \
             nor short but in the middle does not show." }
         (figure("sensitivity", &picture, &html! {
