@@ -28,6 +28,7 @@ mod judges_agree;
 mod limits;
 mod malformed;
 mod margins;
+mod margins_drawn;
 mod outcomes_agree;
 mod outside;
 mod paddings;

@@ -14,7 +14,8 @@ use crate::output::search::case_files;
 use crate::output::text::Page;
 use crate::output::waves::{self, Nets, Picture};
 use crate::output::{
-    causes, charts, convergence, dump, flow_tables, json, page, pictures, sensitivity, shares, tables, words,
+    causes, charts, convergence, dump, flow_tables, json, margin_charts, margins, page, pictures, sensitivity, shares,
+    tables, words,
 };
 use crate::proof::Proof;
 use crate::review::{Review, RunReport, StatesReport};
@@ -183,6 +184,8 @@ fn of_searched(
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));
     bundle.add("findings.csv", tables::findings(scenario, asked, report));
     bundle.add("rules.csv", tables::rules(scenario, report, search));
+    bundle.add("margins.svg", margin_charts::svg(scenario, report));
+    bundle.add("margins.csv", margins::csv(scenario, report));
     if let Some(envelope) = &report.envelope {
         bundle.add("envelope.csv", tables::envelope(scenario, report, envelope));
         let (some, all) = (envelope.moments(), scenario.stimulus.moments.len());
