@@ -15,6 +15,9 @@ const BREAK: u32 = 44;
 /// Room for each line behind it, pixels.
 const SLOT: u32 = 36;
 
+/// From, up to but not including, count.
+type Bar = (Span, Span, u64);
+
 /// What stands behind the break, in order; nothing: there is no break.
 pub(super) struct Far {
     slots: Vec<Span>,
@@ -28,7 +31,7 @@ impl Far {
         let (bars, far) = split(settling);
         let latest = far.map(|bar| Span::from_fs(bar.1.fs().saturating_sub(1)));
         let end = bars.last().map_or(Span::ZERO, |bar| bar.1);
-        // in order, what is behind the break is later than all before it: the bar there leaves no line its place
+        // a line among the far windows stands in their bar, so that all that is behind the break is in order
         let from = match (latest, bars.first()) {
             (Some(_), _) => Some(end),
             (None, Some(first)) if bars.len() > 1 => {
@@ -50,7 +53,7 @@ impl Far {
     }
 
     /// The bars of the common width.
-    pub fn common<'a>(&self, settling: &'a Settling) -> &'a [(Span, Span, u64)] {
+    pub fn common<'a>(&self, settling: &'a Settling) -> &'a [Bar] {
         split(settling).0
     }
 
@@ -97,8 +100,7 @@ impl Far {
 }
 
 /// The bars of the common width, and the one of what settles far later.
-#[allow(clippy::type_complexity)]
-fn split(settling: &Settling) -> (&[(Span, Span, u64)], Option<&(Span, Span, u64)>) {
+fn split(settling: &Settling) -> (&[Bar], Option<&Bar>) {
     match settling.bars.split_last() {
         Some((last, rest)) if settling.far && !rest.is_empty() => (rest, Some(last)),
         _ => (&settling.bars, None),

@@ -14,7 +14,8 @@ pub(super) fn section(told: &Told<'_>) -> Markup {
         (blocks("outcomes", "Outcomes of each step, with settling times", &for_page::outcomes(scenario, told.review)))
         @if settled {
             (figure("settling", &charts::settling_with(scenario, sweep, told.review.proof.as_ref()), &html! {
-                "Settling times. Files: " code { "settling.svg" } ", " code { "settling.csv" } "."
+                "Settling times. Files: " code { "settling.svg" } ", " code { "settling.csv" } ", "
+                code { "settling-figures.csv" } "."
             }))
         }
         @if sweep.stopped.is_some() {
