@@ -214,9 +214,12 @@ settle_within = 40
     read(&text, 400)
 }
 
+/// x, anchor, font size, letters.
+type Drawn = (f64, String, f64, String);
+
 /// XML as it must be, by a reader that forgives nothing; gives x, anchor, font size and letters of each text without its
 /// title, and all titles.
-fn strict(svg: &str) -> (Vec<(f64, String, f64, String)>, Vec<String>) {
+fn strict(svg: &str) -> (Vec<Drawn>, Vec<String>) {
     let (mut open, mut texts, mut titles) = (Vec::<String>::new(), Vec::new(), Vec::new());
     let decode = |text: &str| {
         let mut whole = String::new();
@@ -238,9 +241,9 @@ fn strict(svg: &str) -> (Vec<(f64, String, f64, String)>, Vec<String>) {
         assert!(!rest[..at].contains('>'), "a bare > in {text:?}");
         let end = rest.find('>').expect("a tag ends");
         let inner = &rest[at + 1..end];
-        assert!(!inner.contains('<') && inner.matches('"').count() % 2 == 0, "<{inner}>");
+        assert!(!inner.contains('<') && inner.matches('"').count().is_multiple_of(2), "<{inner}>");
         match open.last().map(String::as_str) {
-            Some("text") => texts.last_mut().map(|it: &mut (f64, String, f64, String)| it.3 += text.trim()).unwrap(),
+            Some("text") => texts.last_mut().map(|it: &mut Drawn| it.3 += text.trim()).unwrap(),
             Some("title") => titles.push(text),
             _ => assert!(text.trim().is_empty(), "{text:?} is no text"),
         }
@@ -279,7 +282,7 @@ fn hostile_names_of_nets_neither_break_nor_overflow() {
     let label = format!("{LABEL} ").repeat(9);
     let mut relabelled = scenario.clone();
     let stimulus = std::sync::Arc::make_mut(&mut relabelled.stimulus);
-    stimulus.steps.iter_mut().for_each(|step| step.label = label.clone());
+    stimulus.moments.iter_mut().for_each(|moment| moment.label = label.clone());
     let tables = [
         (
             shares::svg(&scenario, &review.asked, &review.sweep),
@@ -335,7 +338,8 @@ fn the_inequality_of_the_proof_stands_with_its_bars() {
     let mut fewer = review.clone();
     let claims = &mut fewer.proof.as_mut().unwrap().claims;
     let race = claims.iter_mut().find_map(|claim| claim.race.as_mut()).unwrap();
-    (race.first.terms.truncate(1), race.second.terms.clear());
+    race.first.terms.truncate(1);
+    race.second.terms.clear();
     let inside = columns(&sensitivity::csv(&scenario, &fewer).unwrap(), &["quantity", "in_inequality"]);
     for row in &inside {
         assert_eq!(row[1] == "yes", row[0].contains("choose_lower"), "{inside:?}");
