@@ -3,6 +3,7 @@
 #![allow(clippy::unwrap_used)] // a helper that fails is a test that fails
 
 mod boards;
+mod bounced;
 mod bounded;
 mod bounded_agrees;
 mod bounded_cycles;
