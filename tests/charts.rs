@@ -260,7 +260,8 @@ fn strict(svg: &str) -> (Vec<Drawn>, Vec<String>) {
                         inner.split(&format!(" {key}=\"")).nth(1).and_then(|it| it.split('"').next()).unwrap()
                     };
                     let number = |key: &str| of(key).parse::<f64>().unwrap();
-                    texts.push((number("x"), of("text-anchor").to_string(), number("font-size"), String::new()));
+                    let anchor = if inner.contains("rotate(") { "turned" } else { of("text-anchor") };
+                    texts.push((number("x"), anchor.to_string(), number("font-size"), String::new()));
                 }
                 if !inner.ends_with('/') {
                     open.push(name);
@@ -313,6 +314,7 @@ fn hostile_names_of_nets_neither_break_nor_overflow() {
             let (from, to) = match &anchor[..] {
                 "start" => (x, x + wide),
                 "end" => (x - wide, x),
+                "turned" => (x - size, x + size),
                 _ => (x - wide / 2.0, x + wide / 2.0),
             };
             assert!(from >= 0.0 && to <= 1000.0, "{text:?} from {from} to {to}");
