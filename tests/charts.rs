@@ -314,7 +314,8 @@ fn hostile_names_of_nets_neither_break_nor_overflow() {
             let (from, to) = match &anchor[..] {
                 "start" => (x, x + wide),
                 "end" => (x - wide, x),
-                "turned" => (x - size, x + size),
+                // its lines go down from x, turned to the right
+                "turned" => (x, x + size),
                 _ => (x - wide / 2.0, x + wide / 2.0),
             };
             assert!(from >= 0.0 && to <= 1000.0, "{text:?} from {from} to {to}");
