@@ -10,6 +10,7 @@ mod bounded_cycles;
 mod bounded_simulated;
 mod causes;
 mod challenge;
+mod charts;
 mod commands;
 mod conditions;
 mod coverage;
