@@ -170,7 +170,10 @@ impl Plant {
             if let Place::When { pattern, .. } = &step.place {
                 of.extend(pattern.iter().map(|entry| entry.0));
                 // the pattern is looked for once the inputs of the step before have changed
-                let before = s.checked_sub(1).map(|before| &stimulus.steps[before]).filter(|it| it.skew.is_some() || it.bounce.is_some());
+                let before = s
+                    .checked_sub(1)
+                    .map(|before| &stimulus.steps[before])
+                    .filter(|it| it.skew.is_some() || it.bounce.is_some());
                 of.extend(before.into_iter().flat_map(|step| &step.set).map(|entry| entry.0));
             }
         }
@@ -286,10 +289,11 @@ impl Plant {
             },
             set: step.set.iter().filter_map(|(net, value)| local.get(net).map(|net| (*net, *value))).collect(),
             skew: step.skew.map_or(0, |skew| ticks(skew.max - skew.min)),
-            bounce: step.bounce.as_ref().filter(|bounce| bounce.pulses.1 > 0).map(|bounce| PlantBounce {
-                lasting: range(bounce.lasting),
-                pairs: bounce.pulses,
-            }),
+            bounce: step
+                .bounce
+                .as_ref()
+                .filter(|bounce| bounce.pulses.1 > 0)
+                .map(|bounce| PlantBounce { lasting: range(bounce.lasting), pairs: bounce.pulses }),
             others: step.set.iter().any(|(net, _)| !local.contains_key(net)),
         });
         let steps = steps.collect();

@@ -476,7 +476,8 @@ impl Walk<'_> {
         let plant = self.plant;
         if !block.came {
             let shows = plant.shows_pattern(self.steps, &block.values);
-            let late = block.movers.iter().any(|mover| matches!(mover, Mover::Late(_) | Mover::Toggle(..) | Mover::Step(_)));
+            let late =
+                block.movers.iter().any(|mover| matches!(mover, Mover::Late(_) | Mover::Toggle(..) | Mover::Step(_)));
             self.goes_on = (shows && !late).then_some(number);
             return;
         }

@@ -63,12 +63,13 @@ impl Block<'_> {
         // a contact that bounces moves, whatever it leads to
         let bounces = steps.last().is_some_and(|step| step.bounce.is_some()) && self.moving;
         // the last one to set an input decides
-        bounces || steps.iter().enumerate().any(|(at, step)| {
-            step.set.iter().any(|(net, value)| {
-                let again = steps[at + 1..].iter().any(|later| later.set.iter().any(|set| set.0 == *net));
-                self.plant.core[*net as usize] && !again && super::key::bit(self.before, *net as usize) != *value
+        bounces
+            || steps.iter().enumerate().any(|(at, step)| {
+                step.set.iter().any(|(net, value)| {
+                    let again = steps[at + 1..].iter().any(|later| later.set.iter().any(|set| set.0 == *net));
+                    self.plant.core[*net as usize] && !again && super::key::bit(self.before, *net as usize) != *value
+                })
             })
-        })
     }
 }
 

@@ -57,7 +57,9 @@ fn killed_and_killed_again(at: &Path, options: &[&str], seed: u64) -> String {
         child.kill().unwrap();
         let ended = child.wait().unwrap();
         let Some(file) = unfinished(&out) else {
-            assert!(ended.success(), "nothing is kept of a killed sweep");
+            // killed when it had done its work, or it is lost
+            let complete = ended.success() || files(&out) == files(&at.join("whole"));
+            assert!(complete, "nothing is kept of a killed sweep");
             break;
         };
         kills += 1;

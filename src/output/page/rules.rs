@@ -5,8 +5,8 @@ use maud::{Markup, html};
 use super::parts::{Cell, Table, blocks, cut, figure};
 use super::{Told, anchor};
 use crate::output::text::{self, Tone, for_page};
-use crate::output::{margin_charts, margins};
 use crate::output::words::{self, count, many};
+use crate::output::{margin_charts, margins};
 use crate::sweep::RuleReport;
 use crate::time::rounded;
 
