@@ -27,6 +27,7 @@ mod judges_agree;
 mod limits;
 mod malformed;
 mod margins;
+mod needs_variation;
 mod outcomes_agree;
 mod outside;
 mod paddings;

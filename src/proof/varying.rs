@@ -171,10 +171,14 @@ impl Kind {
         let whole = plant.steps.iter().any(|step| matches!(step.place, PlantPlace::When { .. }))
             || plant.wires.iter().any(|wire| !wire.in_order);
         let nets = goal.nets();
-        let mut conditions: Vec<Condition> = system.rows.iter().map(|row| {
-            let (terms, constant) = named(system, &row.form);
-            (terms, constant, row.sense as u8)
-        }).collect();
+        let mut conditions: Vec<Condition> = system
+            .rows
+            .iter()
+            .map(|row| {
+                let (terms, constant) = named(system, &row.form);
+                (terms, constant, row.sense as u8)
+            })
+            .collect();
         conditions.sort_unstable();
         conditions.dedup();
         let mut changes = vec![Vec::new(); plant.signals()];
@@ -273,7 +277,9 @@ impl Goal {
         match self {
             Goal::Reached | Goal::Short { .. } => true,
             // both edges at one instant need no earlier one
-            Goal::Close { from, to, .. } => from.net == to.net || !changes(from.net, last).is_some_and(|new| from.kind.is(new)),
+            Goal::Close { from, to, .. } => {
+                from.net == to.net || !changes(from.net, last).is_some_and(|new| from.kind.is(new))
+            }
             Goal::Open { from, to, .. } => from.net != to.net,
             Goal::Long { pattern, .. } => !pattern.iter().all(|(net, value)| bit(start, *net as usize) == *value),
             // the time counts from what changes an input of the cone, and from no idle step
@@ -416,7 +422,7 @@ impl Prover<'_> {
         }
         let live = live(world, watch, breaks, &budget);
         let budget = Budget { zones: budget.zones.min(BRANCHES), ..budget };
-        let mut traces = 0;
+        let (mut beginnings, mut traces) = (0, 0);
         let mut searched = Searched::Never;
         let mut joint = ties;
         // what takes exactly equal times comes last
@@ -439,7 +445,7 @@ impl Prover<'_> {
             };
             let mode = Mode { merge: Merge::Branch, joint: together, ..Mode::default() };
             let found = explore_heard(&world.plant, &world.starts, watch, mode, &budget, &mut search);
-            traces = search.traces;
+            (beginnings, traces) = (found.zones, search.traces);
             if let Some((case, system, trace, start)) = search.shown {
                 searched = Searched::Shown { case, system, trace, start };
                 break;
@@ -474,16 +480,20 @@ impl Prover<'_> {
             }
             Searched::Never => {
                 claim.variation = Some(Variation::CycleToCycle);
-                let mut reason = "proved for constant delays only: no trace that breaks it has any, it takes delays that \
+                let mut reason =
+                    "proved for constant delays only: no trace that breaks it has any, it takes delays that \
                                   change from one firing to the next"
-                    .to_string();
+                        .to_string();
                 if anew {
                     reason += ", as the draws of this scenario do";
                 }
                 claim.reason = Some(reason);
             }
             Searched::Open(why) => {
-                claim.reason = Some(format!("{before}; constant delays are undecided: {why} ({traces} more traces tried)"));
+                claim.reason = Some(format!(
+                    "{before}; constant delays are undecided: {why} ({beginnings} beginnings of traces and {traces} whole \
+                     traces tried)"
+                ));
             }
         }
     }
