@@ -53,6 +53,8 @@ fn the_main_job_on_the_demonstration_leaves_its_files() {
         "outcomes.csv",
         "findings.csv",
         "rules.csv",
+        "margins.svg",
+        "margins.csv",
         "envelope.csv",
         "states.svg",
         "states.csv",

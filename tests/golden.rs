@@ -24,6 +24,7 @@ use stillgate::output::flow_map::{self, Map};
 use stillgate::output::text::{self, Page, Style};
 use stillgate::output::waves::{self, Picture};
 use stillgate::output::{bundle, charts, flow_tables, json, tables};
+use stillgate::output::{margin_charts, margins};
 use stillgate::review::{RunReport, StatesReport};
 use stillgate::scenario::{Plot, RefNet, Reference, Scenario};
 use stillgate::statics::{Change, Race};
@@ -55,7 +56,7 @@ fn draw(scenario: &Scenario, report: &RunReport) -> Vec<String> {
 }
 
 /// A small check of XML: every tag is closed in order, and `&` begins an entity.
-fn well_formed(svg: &str) {
+pub fn well_formed(svg: &str) {
     assert!(!svg.chars().any(|letter| letter.is_control() && letter != '\n'), "a control character");
     let mut open: Vec<&str> = Vec::new();
     let mut rest = svg;
@@ -307,6 +308,8 @@ fn the_files_of_a_review() {
         "outcomes.csv",
         "findings.csv",
         "rules.csv",
+        "margins.svg",
+        "margins.csv",
         "states.svg",
         "states.csv",
         "transitions.csv",
@@ -411,6 +414,16 @@ fn settling_chart() {
     let report = results::sweep(&scenario, &Asked::of(&scenario));
     golden("settling.svg", &charts::settling(&scenario, &report));
     golden("settling.csv", &tables::settling(&scenario, &report));
+}
+
+#[test]
+fn margins_chart() {
+    let scenario = lock();
+    let report = results::sweep(&scenario, &Asked::of(&scenario));
+    let svg = margin_charts::svg(&scenario, &report);
+    well_formed(&svg);
+    golden("margins.svg", &svg);
+    golden("margins.csv", &margins::csv(&scenario, &report));
 }
 
 #[test]

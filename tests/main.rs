@@ -27,6 +27,7 @@ mod judges_agree;
 mod limits;
 mod malformed;
 mod margins;
+mod margins_drawn;
 mod needs_variation;
 mod outcomes_agree;
 mod outside;

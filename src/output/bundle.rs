@@ -13,6 +13,7 @@ pub use crate::output::pictures::MOST_PICTURES;
 use crate::output::search::case_files;
 use crate::output::text::Page;
 use crate::output::waves::{self, Nets, Picture};
+use crate::output::{margin_charts, margins};
 use crate::output::{causes, charts, convergence, dump, flow_tables, json, page, pictures, tables, words};
 use crate::proof::Proof;
 use crate::review::{Review, RunReport, StatesReport};
@@ -172,6 +173,8 @@ fn of_searched(scenario: &Scenario, asked: &Asked, report: &SweepReport, search:
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));
     bundle.add("findings.csv", tables::findings(scenario, asked, report));
     bundle.add("rules.csv", tables::rules(scenario, report, search));
+    bundle.add("margins.svg", margin_charts::svg(scenario, report));
+    bundle.add("margins.csv", margins::csv(scenario, report));
     if let Some(envelope) = &report.envelope {
         bundle.add("envelope.csv", tables::envelope(scenario, report, envelope));
         let (some, all) = (envelope.moments(), scenario.stimulus.moments.len());

@@ -22,6 +22,8 @@ pub mod limit_charts;
 pub mod limit_map;
 pub mod limit_tables;
 mod limit_words;
+pub mod margin_charts;
+pub mod margins;
 mod measure;
 pub mod page;
 mod pictures;

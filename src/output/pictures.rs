@@ -1,10 +1,11 @@
 //! Which runs of a review get a picture, and how: for the files and for the page alike.
 
-use std::collections::BTreeSet;
+use std::collections::{BTreeMap, BTreeSet};
 
 use super::bundle::unique;
 use super::causes;
 use super::waves::{Nets, Picture};
+use crate::circuit::NetId;
 use crate::findings::Subject;
 use crate::review::{Review, RunReport};
 use crate::scenario::Scenario;
@@ -14,6 +15,8 @@ use crate::time::Time;
 pub const MOST_PICTURES: usize = 12;
 /// Of runs with more windows than this only what is around the finding is shown.
 const WHOLE_RUN: usize = 8;
+/// Transitions of one net above which a picture shows only what is around the finding.
+const DENSE: usize = 60;
 /// The stem of the files of the typical run.
 pub(super) const TYPICAL: &str = "waves-typical";
 
@@ -62,15 +65,43 @@ pub(super) fn shown<'a>(scenario: &'a Scenario, review: &'a Review) -> Vec<Shown
 /// The stretch of a long run in which a finding lies; `None` for a short run.
 fn around(subject: &Subject, run: &RunReport) -> Option<(Time, Time)> {
     let windows = &run.trace.windows;
-    if windows.len() <= WHOLE_RUN {
-        return None;
-    }
-    let window = windows.iter().find(|window| Some(window.moment) == subject.moment)?;
     let place = run.facts.iter().find(|fact| fact.subject == *subject).and_then(|fact| fact.place);
-    let (from, to) = place.unwrap_or((window.start, window.stop));
-    let (from, to) = (from.min(window.start), to.max(window.stop));
+    let window = windows.iter().find(|window| Some(window.moment) == subject.moment);
+    let window = window.filter(|_| windows.len() > WHOLE_RUN).map(|window| {
+        let (from, to) = place.unwrap_or((window.start, window.stop));
+        (from.min(window.start), to.max(window.stop))
+    });
     // something of before and after, so that edges at both ends can be seen
-    let length = to.since(from).fs();
-    let before = Time::from_fs(from.fs().saturating_sub(length / 3));
-    Some((before, Time::from_fs(to.fs() + length / 12).min(run.trace.end.max(to))))
+    let widened = |(from, to): (Time, Time), before: u64, after: (u64, u64)| {
+        let length = to.since(from).fs();
+        let end = Time::from_fs(to.fs().saturating_add((length / after.1).saturating_mul(after.0)));
+        let from = Time::from_fs(from.fs().saturating_sub(length.saturating_mul(before) / 3));
+        (from, end.min(run.trace.end.max(to)))
+    };
+    let range = window.map(|window| widened(window, 1, (1, 12)));
+    let all = range.unwrap_or((Time::ZERO, run.trace.end));
+    let range = match place {
+        Some(place) if is_dense(run, all) => {
+            let close = widened(place, 6, (1, 1));
+            let much = all.1.since(all.0).fs() / 4;
+            if place.1 > place.0 && close.1.since(close.0).fs() < much { Some(close) } else { range }
+        }
+        _ => range,
+    };
+    range.map(|(from, to)| round_outwards(from, to, run.trace.end))
+}
+
+/// A span of time with round ends, at most a tenth longer at each; what reaches the end stays there.
+fn round_outwards(from: Time, to: Time, end: Time) -> (Time, Time) {
+    let step = 10u64.pow(to.since(from).fs().checked_ilog10().unwrap_or(0).saturating_sub(1));
+    let rounded = to.fs().checked_next_multiple_of(step).map_or(end, Time::from_fs);
+    (Time::from_fs(from.fs() / step * step), if to >= end { to } else { rounded.min(end) })
+}
+
+/// Does some net change so often between these times that a reader cannot tell its transitions apart?
+fn is_dense(run: &RunReport, (from, to): (Time, Time)) -> bool {
+    let mut changes: BTreeMap<NetId, usize> = BTreeMap::new();
+    let inside = run.trace.changes.iter().filter(|change| (from..=to).contains(&change.at));
+    inside.for_each(|change| *changes.entry(change.net).or_default() += 1);
+    changes.into_values().any(|count| count > DENSE)
 }

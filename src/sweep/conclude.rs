@@ -60,6 +60,7 @@ pub fn conclude_after(scenario: &Scenario, asked: &Asked, tally: &Tally, looks: 
                 not_judged,
                 margin: row.margin.map(|(slack, _)| i128::from(slack)),
                 margin_sample: row.margin.map(|(_, sample)| sample),
+                margins: row.margins.clone(),
                 at_most: None,
             }
         })

@@ -104,6 +104,7 @@ impl Shape<'_> {
         not_judged.is_some_and(|all| all <= self.samples)
             && row.broken <= row.judged
             && row.margin.is_none_or(|(_, sample)| sample < self.planned)
+            && row.margins.fits(row.judged, row.broken, row.margin.map(|it| it.0))
     }
 
     fn fact(&self, fact: &FactTally) -> bool {

@@ -9,7 +9,7 @@ use crate::instance::LAYOUT;
 
 /// The number of the format. It counts up with everything that changes what a part holds, what its figures mean, or what
 /// a sample is judged to be: parts of different formats cannot be put together.
-pub const FORMAT: u32 = 3;
+pub const FORMAT: u32 = 4;
 
 /// The beginning of the first line.
 const MAGIC: &str = "stillgate part, ";

@@ -12,6 +12,7 @@ use crate::time::Span;
 use super::conclude::confidence;
 use super::envelope::Envelope;
 use super::looks::{Curve, Point, widest};
+use super::margins::Margins;
 use super::ranges::Ranges;
 use super::stats::clopper_pearson;
 use super::unseen::UnseenMass;
@@ -210,6 +211,9 @@ pub struct RuleReport {
     pub margin: Option<i128>,
     /// The sample of the worst slack.
     pub margin_sample: Option<u64>,
+    /// The worst slack of each sample that was judged and has one, in classes. Judged samples in which there was nothing to
+    /// measure have none, such as those in which a state that `never` tolerates for a while did not come.
+    pub margins: Margins,
     /// If no draw broke it: how often one may at most. `None` for races, which no draw shows alone, with tries where it was
     /// not judged in every sample, and for draws of `corners` and `hypercube`.
     pub at_most: Option<AtMost>,

@@ -6,6 +6,7 @@ use serde::{Deserialize, Serialize};
 
 use super::envelope::Envelope;
 use super::lowest::Lowest;
+use super::margins::Margins;
 use super::seen::{Key, Seen, mix};
 use super::spread::Spread;
 use super::waiting::{Waiting, note};
@@ -112,6 +113,8 @@ pub struct RowTally {
     pub not_judged: [u64; Reason::ALL.len()],
     /// The worst slack, and the lowest sample with it.
     pub margin: Option<(i64, u64)>,
+    /// The worst slack of each sample that has one.
+    pub margins: Margins,
 }
 
 /// How often something was found.
@@ -421,6 +424,7 @@ impl Tally {
                 *ours += theirs;
             }
             merge_worst(&mut ours.margin, theirs.margin, |new, old| new < old);
+            ours.margins.merge(&theirs.margins);
         }
         for (subject, theirs) in &other.facts {
             self.facts.entry(*subject).or_insert_with(|| FactTally::new(theirs.breaks_rule)).merge(theirs);
@@ -442,7 +446,10 @@ impl Sink for Tally {
         let row = &mut self.rows[question as usize];
         row.judged += 1;
         row.broken += u64::from(broken);
-        merge_worst(&mut row.margin, slack.map(|slack| (slack, self.sample)), |new, old| new < old);
+        if let Some(slack) = slack {
+            merge_worst(&mut row.margin, Some((slack, self.sample)), |new, old| new < old);
+            row.margins.add(slack);
+        }
     }
 
     fn not_judged(&mut self, question: u32, reason: Reason) {

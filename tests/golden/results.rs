@@ -3,14 +3,14 @@
 use std::collections::BTreeMap;
 
 use stillgate::circuit::NetId;
-use stillgate::findings::{Asked, Kind, Leg, Path, RacePair, Reason, RuleKey, Shape, Subject};
+use stillgate::findings::{Asked, Kind, Leg, Path, Question, RacePair, Reason, RuleKey, Shape, Subject};
 use stillgate::instance::{Instance, Quantities, Quantity, Which};
 use stillgate::logic::{Bits, State, Value};
 use stillgate::proof::{Call as Claimed, Claim, Proof, Variation, WindowProof};
 use stillgate::review::{Away, Call, Cut, Kept, Needs, Pull, Pulls, Review, StatesReport, Untold, Verdict, Why};
 use stillgate::scenario::Scenario;
 use stillgate::sweep::{
-    AtMost, Boards, Finding, Outcome, Ranges, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass,
+    AtMost, Boards, Finding, Margins, Outcome, Ranges, RuleReport, Settling, SweepReport, Tie, TiesSought, UnseenMass,
     WindowReport, Worst,
 };
 use stillgate::time::{Span, Time};
@@ -34,6 +34,16 @@ pub fn state(letters: &str) -> State {
 
 fn bits(letters: &str) -> Bits {
     Bits::of(letters.chars().map(|letter| letter == '1').collect::<Vec<_>>().into_iter())
+}
+
+/// Margins from the one that [`sweep`] tells upwards.
+fn margins(question: &Question, number: i64) -> Margins {
+    let mut margins = Margins::default();
+    if let Some(bound) = question.bound {
+        let least = bound.fs() as i64 - 2_345_678 * number;
+        (0..40i64).for_each(|i| margins.add(least + i * i * 12_345));
+    }
+    margins
 }
 
 pub fn settling(from: &str, step: &str, counts: &[u64]) -> Settling {
@@ -155,6 +165,7 @@ pub fn sweep(scenario: &Scenario, asked: &Asked) -> SweepReport {
             not_judged: if i == 2 { vec![(Reason::Oscillating, 7), (Reason::Unsettled, 3)] } else { Vec::new() },
             margin: question.bound.map(|bound| i128::from(bound.fs()) - 2_345_678 * i as i128),
             margin_sample: question.bound.map(|_| 42),
+            margins: margins(question, i as i64),
             at_most: (i == 2).then_some(AtMost { share: 0.000_299_8, of: 9_990, boards: false }),
         })
         .collect();

@@ -237,6 +237,7 @@ impl Whole<'_> {
         for (number, rule) in report.rules.iter().enumerate() {
             let of = format!("{of}, question {number}: {rule:?}");
             let (mut judged, mut broken, mut margin) = (0, 0, None);
+            let mut slacks = Vec::new();
             let mut reasons: BTreeMap<Reason, u64> = BTreeMap::new();
             for (sample, run) in self.runs.iter().enumerate() {
                 match run.said.answers.get(&(number as u32)) {
@@ -245,6 +246,7 @@ impl Whole<'_> {
                     Some(Answer::Judged { broken: this, slack }) => {
                         judged += 1;
                         broken += u64::from(*this);
+                        slacks.extend(slack.map(i128::from));
                         if let Some(slack) =
                             slack.filter(|slack| margin.is_none_or(|worst: (i64, u64)| *slack < worst.0))
                         {
@@ -257,6 +259,11 @@ impl Whole<'_> {
             assert_eq!(rule.not_judged, reasons.into_iter().collect::<Vec<_>>(), "{of}");
             assert_eq!(rule.margin, margin.map(|it| i128::from(it.0)), "{of}");
             assert_eq!(rule.margin_sample, margin.map(|it| it.1), "{of}");
+            assert_eq!(rule.margins.len(), slacks.len() as u64, "{of}");
+            for (from, to, count) in rule.margins.classes() {
+                let within = slacks.iter().filter(|slack| (from..to).contains(*slack)).count();
+                assert_eq!(count, within as u64, "{of}, margins from {from} to {to} fs");
+            }
             if rule.question.rule == RuleKey::CriticalRace {
                 let race = self.races(rule.question.moment.expect("a moment")).filter(|race| race.forbidden);
                 broken = race.map_or(0, |race| race.strays.len() as u64);

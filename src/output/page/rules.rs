@@ -2,9 +2,10 @@
 
 use maud::{Markup, html};
 
-use super::parts::{Cell, Table, blocks, cut};
+use super::parts::{Cell, Table, blocks, cut, figure};
 use super::{Told, anchor};
 use crate::output::text::{self, Tone, for_page};
+use crate::output::{margin_charts, margins};
 use crate::output::words::{self, count, many};
 use crate::sweep::RuleReport;
 use crate::time::rounded;
@@ -56,6 +57,12 @@ pub(super) fn section(told: &Told<'_>) -> Markup {
         (blocks("answers", "Answers", &for_page::answers(told.page, told.review)))
         @if !all.is_empty() { (table.draw()) }
         (cut(all.len().saturating_sub(ROWS), "rows", "rules.csv"))
+        @if margins::any(&told.review.sweep) {
+            (figure("margins", &margin_charts::svg(told.scenario, &told.review.sweep), &html! {
+                "How the margins of the draws spread, the least first; of each draw its worst slack. Left of 0 the rule is broken. \
+                 Files: " code { "margins.svg" } ", " code { "margins.csv" } "."
+            }))
+        }
     }
 }
 

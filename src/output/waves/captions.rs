@@ -54,7 +54,11 @@ pub(super) fn notes(picture: &Picture<'_>, seen: &Seen<'_>) -> Vec<String> {
     }
     if let Some((from, to)) = seen.part {
         let time = |at: Time| at.from_start().decimal(scenario.unit);
-        let (from, to, all) = (time(from), time(to), time(seen.end));
+        // four digits tell how much is left out
+        let all = seen.end.fs();
+        let step = 10u64.pow(all.checked_ilog10().unwrap_or(0).saturating_sub(3));
+        let all = Time::from_fs(all.saturating_add(step / 2) / step * step);
+        let (from, to, all) = (time(from), time(to), time(all));
         notes.push(format!("A part of the run: from {from} to {to} of {all} {}.", scenario.unit));
     }
     if picture.range.is_some_and(|(from, _)| from >= seen.end) {

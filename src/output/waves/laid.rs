@@ -4,6 +4,7 @@
 use super::Picture;
 use super::lane::Wave;
 use crate::circuit::NetId;
+use crate::engine::End;
 use crate::logic::Value;
 use crate::output::words;
 use crate::review::RunReport;
@@ -44,7 +45,7 @@ impl Laid {
         let scenario = picture.scenario;
         let (steps, own) = (&front.trace.windows, &run.trace.windows);
         let mut pieces = Vec::with_capacity(steps.len() + 1);
-        let (mut missing, mut otherwise) = (Vec::new(), Vec::new());
+        let (mut missing, mut otherwise, mut ended) = (Vec::new(), Vec::new(), Vec::new());
         pieces.push(Piece { from: Time::ZERO, to: steps.first().map(|first| first.start), window: None });
         // the piece that each window of the run fills
         let mut fills: Vec<Option<u32>> = vec![None; own.len()];
@@ -60,6 +61,14 @@ impl Laid {
                         otherwise.extend(words::step(scenario, Some(window.moment)));
                     }
                     fills[found] = Some(pieces.len() as u32);
+                    let lasted = own[found].stop.since(own[found].start);
+                    let left = Time::from_fs(window.start.fs().saturating_add(lasted.fs()));
+                    let unfinished = !matches!(own[found].end, End::Settled);
+                    // nothing is known of it once it was left
+                    if unfinished && left < to.unwrap_or(front.trace.end) {
+                        ended.extend(words::step(scenario, Some(window.moment)));
+                    }
+                    let to = if unfinished { Some(to.map_or(left, |to| to.min(left))) } else { to };
                     pieces.push(Piece { from: window.start, to, window: Some(found) });
                 }
                 None => missing.extend(words::step(scenario, Some(window.moment))),
@@ -87,6 +96,10 @@ impl Laid {
         if !missing.is_empty() {
             let steps = words::labels(&missing, NAMED);
             notes.push(format!("Not dashed: {case} had no window of {steps}."));
+        }
+        if !ended.is_empty() {
+            let steps = words::labels(&ended, NAMED);
+            notes.push(format!("The dashed run was followed for a shorter time after {steps}."));
         }
         if late > 0 {
             let late = words::many(late, "dashed edge");
