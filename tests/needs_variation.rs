@@ -227,7 +227,10 @@ fn no_constant_delays_on_a_grid_break_what_takes_changing_ones() {
         let Ok(program) = Program::new(&scenario, &control) else { continue };
         let asked = Asked::of(&scenario);
         let proof = prove(&scenario, &program, &asked, &Spend { zones: 20_000, ..Spend::default() }, &control);
-        let open = |claim: &&Claim| claim.variation.is_some();
+        // what several states tell apart no single run shows
+        let asks = |claim: &Claim| asked.questions[claim.question as usize].rule;
+        let open =
+            |claim: &&Claim| claim.variation.is_some() && matches!(asks(claim), RuleKey::NeverAtRest | RuleKey::Timing);
         if proof.claims.iter().filter(open).count() == 0 {
             continue;
         }

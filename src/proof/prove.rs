@@ -87,6 +87,7 @@ pub fn prove(scenario: &Scenario, program: &Program, asked: &Asked, spend: &Spen
     };
     let mut prover = Prover::new(scenario, program, asked, budget);
     prover.left = spend.total;
+    prover.branches = Some(spend.total.map_or(u64::MAX, |zones| zones / super::varying::ZONES_A_BRANCH));
     prover.proof.allowed = spend.total;
     prover.collects = spend.margins || spend.padding;
     prover.questions(&|_| true);
@@ -108,6 +109,8 @@ pub(super) struct Prover<'a> {
     pub(super) budget: Budget,
     /// Zones that all explorations together may still keep.
     left: Option<u64>,
+    /// Beginnings of traces that all searches for constant delays may still keep; `None`: there are no such searches.
+    pub(super) branches: Option<u64>,
     pub(super) proof: Proof,
     /// Is evidence kept?
     pub(super) collects: bool,
@@ -138,7 +141,7 @@ enum Looked {
 impl<'a> Prover<'a> {
     pub(super) fn new(scenario: &'a Scenario, program: &'a Program, asked: &'a Asked, budget: Budget) -> Prover<'a> {
         let (proof, collects, evidence) = (Proof::default(), false, Vec::new());
-        Prover { scenario, program, asked, budget, left: None, proof, collects, evidence }
+        Prover { scenario, program, asked, budget, left: None, branches: None, proof, collects, evidence }
     }
 
     pub(super) fn world(&mut self, nets: &[NetId], spans: &[Span]) -> Result<World, Unsaid> {

@@ -7,7 +7,7 @@
 //! breaks the claim. Two beginnings are one if they demand the same and differ only in the order of events that have nothing
 //! to do with each other (traces of Mazurkiewicz 1977).
 
-use std::collections::{BTreeMap, BTreeSet};
+use std::collections::BTreeSet;
 use std::rc::Rc;
 
 use rustc_hash::{FxHashMap, FxHashSet};
@@ -29,8 +29,12 @@ use crate::scenario::Vary;
 
 /// Beginnings of traces that are kept for one claim, at most.
 const BRANCHES: u64 = 2_000;
-/// Conditions in all linear programs for one claim, at most.
+/// Of the zones that one exploration may keep (and all of them), one beginning for so many.
+pub(super) const ZONES_A_BRANCH: u64 = 4;
+/// Conditions in all linear programs for one claim, at most: so many in all, and so many for each zone that one exploration
+/// may keep.
 const ROWS: u64 = 100_000;
+const ROWS_A_ZONE: u64 = 10;
 /// Traces to the breach that are looked at for one claim, at most.
 const TRACES: u64 = 500;
 
@@ -47,24 +51,48 @@ enum Searched {
     Open(String),
 }
 
-/// Constant delays that fit a beginning, by unknown: numerators over one denominator.
+/// Constant delays that fit a beginning, by the search's number of the unknown: numerators over one denominator.
 struct Fit {
-    values: BTreeMap<Unknown, i128>,
+    values: Vec<Option<i128>>,
     denominator: i128,
 }
 
-/// A condition without the numbers of one system: factors by unknown, constant, how it stands to 0.
-type Condition = (Vec<(Unknown, i64)>, i64, u8);
+/// Unknowns and forms of all systems of a search, by number.
+#[derive(Default)]
+struct Names {
+    unknowns: FxHashMap<Unknown, u32>,
+    forms: FxHashMap<(Vec<(u32, i64)>, i64), u32>,
+}
 
-/// What tells kinds of beginnings apart.
+impl Names {
+    /// The numbers of a system's unknowns.
+    fn of(&mut self, system: &System) -> Vec<u32> {
+        let mut number = |unknown: &Unknown| {
+            let next = self.unknowns.len() as u32;
+            *self.unknowns.entry(*unknown).or_insert(next)
+        };
+        system.unknowns.iter().map(&mut number).collect()
+    }
+
+    /// The number of a form, whatever the order of its system's unknowns.
+    fn form(&mut self, unknowns: &[u32], form: &Form) -> u32 {
+        let mut terms: Vec<(u32, i64)> = form.terms.iter().map(|(u, factor)| (unknowns[*u], *factor)).collect();
+        terms.sort_unstable();
+        let next = self.forms.len() as u32;
+        *self.forms.entry((terms, form.constant)).or_insert(next)
+    }
+}
+
+/// What tells kinds of beginnings apart; forms by number.
 #[derive(PartialEq, Eq, Hash)]
 struct Kind {
     start: Vec<u64>,
-    conditions: Vec<Condition>,
+    /// Each condition, and how it stands to 0.
+    conditions: Vec<(u32, u8)>,
     /// When each signal changed, signal by signal.
-    changes: Vec<Vec<(Vec<(Unknown, i64)>, i64)>>,
+    changes: Vec<(u32, u32)>,
     /// When what pends is due.
-    pending: Vec<(u32, Vec<(Unknown, i64)>, i64)>,
+    pending: Vec<(u32, u32)>,
     /// Blocks whose order counts.
     order: Vec<(Vec<Mover>, Vec<u64>)>,
 }
@@ -81,7 +109,10 @@ struct Search<'a, 'p> {
     fits: FxHashMap<u32, Rc<Fit>>,
     dead: FxHashSet<u32>,
     kinds: FxHashMap<Kind, u32>,
+    names: Names,
+    /// Conditions in all programs, and how many there may be.
     rows: u64,
+    most: u64,
     /// Traces to the breach whose conditions up to there have constant delays.
     traces: u64,
     /// Why it shows nothing if it finds nothing.
@@ -153,43 +184,34 @@ fn live<W: Watch>(world: &World, watch: &W, breaks: Breaks<'_>, budget: &Budget)
     Some(live)
 }
 
-/// A form without the numbers of its system.
-fn named(system: &System, form: &Form) -> (Vec<(Unknown, i64)>, i64) {
-    let mut terms: Vec<(Unknown, i64)> = form.terms.iter().map(|(u, f)| (system.unknowns[*u], *f)).collect();
-    terms.sort_unstable();
-    (terms, form.constant)
-}
-
 /// Does it come from outside?
 fn from_outside(mover: &Mover) -> bool {
     matches!(mover, Mover::Step(_) | Mover::Edge(_) | Mover::Late(_) | Mover::Apart)
 }
 
 impl Kind {
-    fn of(plant: &Plant, system: &System, start: &[u64], trace: &[Fired], goal: &Goal) -> Kind {
+    fn of(
+        (plant, goal): (&Plant, &Goal),
+        (names, unknowns): (&mut Names, &[u32]),
+        system: &System,
+        start: &[u64],
+        trace: &[Fired],
+    ) -> Kind {
         // where something may wait for a pattern, or overtake, the whole order counts
         let whole = plant.steps.iter().any(|step| matches!(step.place, PlantPlace::When { .. }))
             || plant.wires.iter().any(|wire| !wire.in_order);
         let nets = goal.nets();
-        let mut conditions: Vec<Condition> = system
-            .rows
-            .iter()
-            .map(|row| {
-                let (terms, constant) = named(system, &row.form);
-                (terms, constant, row.sense as u8)
-            })
-            .collect();
+        let mut conditions: Vec<(u32, u8)> =
+            system.rows.iter().map(|row| (names.form(unknowns, &row.form), row.sense as u8)).collect();
         conditions.sort_unstable();
         conditions.dedup();
-        let mut changes = vec![Vec::new(); plant.signals()];
+        let mut changes = Vec::new();
         let mut order = Vec::new();
         let mut before = start;
         for (block, time) in trace.iter().zip(&system.times) {
-            for (signal, changes) in changes.iter_mut().enumerate() {
-                if bit(before, signal) != bit(&block.values, signal) {
-                    changes.push(named(system, time));
-                }
-            }
+            let time = names.form(unknowns, time);
+            let changed = (0..plant.signals()).filter(|signal| bit(before, *signal) != bit(&block.values, *signal));
+            changes.extend(changed.map(|signal| (signal as u32, time)));
             let counts = nets.iter().any(|net| bit(before, *net as usize) != bit(&block.values, *net as usize));
             if whole || counts || block.movers.is_empty() || block.movers.iter().any(from_outside) {
                 let values = if whole { block.values.clone() } else { Vec::new() };
@@ -200,10 +222,9 @@ impl Kind {
             }
             before = &block.values;
         }
-        let pending = system.pending.iter().map(|(gate, due)| {
-            let (terms, constant) = named(system, due);
-            (*gate, terms, constant)
-        });
+        // signal by signal, each in its order
+        changes.sort_by_key(|change| change.0);
+        let pending = system.pending.iter().map(|(gate, due)| (*gate, names.form(unknowns, due)));
         Kind { start: start.to_vec(), conditions, changes, pending: pending.collect(), order }
     }
 }
@@ -211,7 +232,7 @@ impl Kind {
 impl System {
     /// Values that keep every condition with "below" read as "at most", or `Some(None)` if there are none; `None` if the numbers
     /// grew too large.
-    fn fit(&self) -> Option<Option<Fit>> {
+    fn fit(&self, numbers: &[u32]) -> Option<Option<Fit>> {
         let mut program = Program { variables: self.unknowns.len(), ..Program::default() };
         let mut known = BTreeSet::new();
         for row in self.rows.iter().filter(|row| known.insert((&row.form.terms, row.form.constant, row.sense as u8))) {
@@ -229,7 +250,9 @@ impl System {
         match program.solve() {
             Solved::Best(best) => {
                 let value = |at: usize| best.values[at] + i128::from(self.ranges[at].min) * best.denominator;
-                let values = self.unknowns.iter().enumerate().map(|(at, unknown)| (*unknown, value(at))).collect();
+                let most = numbers.iter().max().map_or(0, |most| *most as usize + 1);
+                let mut values = vec![None; most];
+                numbers.iter().enumerate().for_each(|(at, number)| values[*number as usize] = Some(value(at)));
                 Some(Some(Fit { values, denominator: best.denominator }))
             }
             Solved::Infeasible => Some(None),
@@ -238,19 +261,23 @@ impl System {
     }
 
     /// Do these values keep every condition, new unknowns at their least?
-    fn keeps(&self, fit: &Fit) -> Option<Fit> {
-        let of = |(unknown, range): (&Unknown, &super::plant::Ticks)| {
-            let least = i128::from(range.min) * fit.denominator;
-            (*unknown, fit.values.get(unknown).copied().unwrap_or(least))
+    fn keeps(&self, fit: &Fit, numbers: &[u32]) -> Option<Fit> {
+        let of = |(number, range): (&u32, &super::plant::Ticks)| {
+            let known = fit.values.get(*number as usize).copied().flatten();
+            known.unwrap_or(i128::from(range.min) * fit.denominator)
         };
-        let values: BTreeMap<Unknown, i128> = self.unknowns.iter().zip(&self.ranges).map(of).collect();
+        let own: Vec<i128> = numbers.iter().zip(&self.ranges).map(of).collect();
         let kept = self.rows.iter().all(|row| {
-            let terms = row.form.terms.iter();
-            let sum: i128 = terms.map(|(u, f)| values[&self.unknowns[*u]] * i128::from(*f)).sum();
+            let sum: i128 = row.form.terms.iter().map(|(u, factor)| own[*u] * i128::from(*factor)).sum();
             let sum = sum + i128::from(row.form.constant) * fit.denominator;
             if row.sense == Sense::Equal { sum == 0 } else { sum <= 0 }
         });
-        kept.then_some(Fit { values, denominator: fit.denominator })
+        kept.then(|| {
+            let most = numbers.iter().max().map_or(0, |most| *most as usize + 1);
+            let mut values = vec![None; most];
+            numbers.iter().zip(own).for_each(|(number, value)| values[*number as usize] = Some(value));
+            Fit { values, denominator: fit.denominator }
+        })
     }
 }
 
@@ -301,7 +328,7 @@ impl Search<'_, '_> {
     }
 
     /// Has a beginning constant delays, as far as is known?
-    fn goes(&mut self, found: &Explored, node: u32, system: &System) -> bool {
+    fn goes(&mut self, found: &Explored, node: u32, system: &System, numbers: &[u32]) -> bool {
         if self.dead.contains(&node) {
             return false;
         }
@@ -309,11 +336,11 @@ impl Search<'_, '_> {
             return true;
         }
         let parent = found.nodes[node as usize].parent;
-        let fit = match self.fits.get(&parent).and_then(|fit| system.keeps(fit)) {
+        let fit = match self.fits.get(&parent).and_then(|fit| system.keeps(fit, numbers)) {
             Some(fit) => Some(fit),
             None => {
                 self.rows += (system.rows.len() + system.unknowns.len()) as u64;
-                match system.fit() {
+                match system.fit(numbers) {
                     Some(Some(fit)) => Some(fit),
                     Some(None) => {
                         self.dead.insert(node);
@@ -330,12 +357,12 @@ impl Search<'_, '_> {
     }
 
     fn spent(&mut self) -> bool {
-        if self.rows > ROWS {
+        if self.rows > self.most {
             self.open = Some("the budget of conditions ran out");
         } else if self.traces > TRACES {
             self.open = Some("the budget of traces ran out");
         }
-        self.rows > ROWS || self.traces > TRACES
+        self.rows > self.most || self.traces > TRACES
     }
 
     /// Looks for a case in which a trace breaks the claim.
@@ -377,10 +404,12 @@ impl Listener for Search<'_, '_> {
         }
         let (trace, start) = (found.trace(node), found.start(node));
         let system = self.system(&start, &trace);
-        if !self.goes(found, node, &system) {
+        let numbers = self.names.of(&system);
+        if !self.goes(found, node, &system, &numbers) {
             return None;
         }
-        let kind = Kind::of(&self.world.plant, &system, &start, &trace, self.goal);
+        let about = (&self.world.plant, self.goal);
+        let kind = Kind::of(about, (&mut self.names, &numbers), &system, &start, &trace);
         let next = self.kinds.len() as u32;
         Some(*self.kinds.entry(kind).or_insert(next))
     }
@@ -402,7 +431,8 @@ impl Listener for Search<'_, '_> {
         };
         let (trace, start) = (found.trace(node), found.start(node));
         let system = self.system(&start, &trace);
-        self.goes(found, node, &system) && self.try_out(system, trace, start)
+        let numbers = self.names.of(&system);
+        self.goes(found, node, &system, &numbers) && self.try_out(system, trace, start)
     }
 }
 
@@ -415,13 +445,22 @@ impl Prover<'_> {
             return;
         }
         let (ties, before) = (claim.but_for_ties, claim.reason.clone().unwrap_or_default());
+        let Some(left) = self.branches else { return };
+        if left == 0 {
+            let reason = format!("{before}; constant delays are undecided: the budget for all searches ran out");
+            self.proof.claims.last_mut().expect("there is one").reason = Some(reason);
+            return;
+        }
         let budget = self.allowance();
         let early = |clock: &super::outside::PlantClock| clock.first.min < clock.jitter;
         if world.plant.clocks.iter().any(early) {
             return;
         }
         let live = live(world, watch, breaks, &budget);
-        let budget = Budget { zones: budget.zones.min(BRANCHES), ..budget };
+        // small budgets of zones make small searches; all of them together have a share as well
+        let most = ROWS.min(ROWS_A_ZONE * budget.zones);
+        let branches = BRANCHES.min(budget.zones / ZONES_A_BRANCH).min(left).max(1);
+        let budget = Budget { zones: branches, ..budget };
         let (mut beginnings, mut traces) = (0, 0);
         let mut searched = Searched::Never;
         let mut joint = ties;
@@ -438,20 +477,23 @@ impl Prover<'_> {
                 fits: FxHashMap::default(),
                 dead: FxHashSet::default(),
                 kinds: FxHashMap::default(),
+                names: Names::default(),
                 rows: 0,
+                most,
                 traces: 0,
                 open: None,
                 shown: None,
             };
             let mode = Mode { merge: Merge::Branch, joint: together, ..Mode::default() };
             let found = explore_heard(&world.plant, &world.starts, watch, mode, &budget, &mut search);
-            (beginnings, traces) = (found.zones, search.traces);
-            if let Some((case, system, trace, start)) = search.shown {
+            let (shown, open) = (search.shown, search.open);
+            (beginnings, traces) = (beginnings + found.zones, search.traces);
+            if let Some((case, system, trace, start)) = shown {
                 searched = Searched::Shown { case, system, trace, start };
                 break;
             }
             let short = match found.ended {
-                Ended::Complete | Ended::Hit => search.open.map(str::to_string),
+                Ended::Complete | Ended::Hit => open.map(str::to_string),
                 Ended::Zones => Some(format!("the budget of {} beginnings of traces ran out", budget.zones)),
                 ended => Some(self.why(ended)),
             };
@@ -460,6 +502,7 @@ impl Prover<'_> {
                 break;
             }
         }
+        self.branches = Some(left.saturating_sub(beginnings));
         let race = match &searched {
             Searched::Shown { system, trace, start, .. } => {
                 let shows = |case: &Instance| self.shows(case, question);
