@@ -145,31 +145,44 @@ fn a_budget_that_runs_out_says_so() {
     assert!(reason.contains("constant delays are undecided: the budget of") && reason.contains("tried)"), "{reason}");
 }
 
-/// A product of some of these nets, each as it is or inverted, and the phase.
-fn product(rng: &mut ChaCha8Rng, phase: &str) -> String {
-    let mut terms: Vec<String> = vec![phase.to_string()];
-    let nets = ["b", "g", "h"];
-    for (at, net) in nets.sample(rng, 2).enumerate() {
-        // not met at the start, where all are low
-        terms.push(if at == 0 || rng.random() { net.to_string() } else { format!("!{net}") });
+/// Conditions of the two pulses: one net before `b` in one of them and after it in the other, or in both the same; sometimes
+/// another net as well.
+fn conditions(rng: &mut ChaCha8Rng) -> [String; 2] {
+    let (net, other) = if rng.random() { ("g", "h") } else { ("h", "g") };
+    let (early, late) = (format!("{net} & !b"), format!("b & !{net}"));
+    let mut pair = match rng.random_range(0..6) {
+        0 => [early.clone(), early],
+        1 => [late.clone(), late],
+        2 | 3 => [early, late],
+        _ => [late, early],
+    };
+    for (condition, phase) in pair.iter_mut().zip(["!p", "p"]) {
+        *condition += &format!(" & {phase}");
+        if rng.random_bool(0.3) {
+            *condition += if rng.random() { " & " } else { " & !" };
+            *condition += other;
+        }
     }
-    terms.join(" & ")
+    pair
 }
 
-/// Two pulses as above, with random conditions, a second gate, and times in even femtoseconds.
+/// Two pulses as above, with random conditions, a second gate, and times in whole femtoseconds.
 fn random(rng: &mut ChaCha8Rng) -> Scenario {
     let range = |rng: &mut ChaCha8Rng, width: u64| {
-        let least = 2 * rng.random_range(1..=4u64);
-        format!("[{least}, {least}, {}]", least + 2 * rng.random_range(0..=width))
+        let least = rng.random_range(1..=8u64);
+        (least, format!("[{least}, {least}, {}]", least + width))
     };
-    let (g, g_fall, h, h_fall) = (range(rng, 3), range(rng, 1), range(rng, 2), range(rng, 1));
-    let (first, second) = (product(rng, "!p"), product(rng, "p"));
+    let width = rng.random_range(3..=6u64);
+    let ((least, g), (_, g_fall)) = (range(rng, width), range(rng, 1));
+    let (_, h) = range(rng, width - 1);
+    let (_, h_fall) = range(rng, 2);
+    let [first, second] = conditions(rng);
     let from = ["a", "b", "g"].choose(rng).unwrap();
-    let gap = |rng: &mut ChaCha8Rng| 2 * rng.random_range(1..=5u64);
+    // about when `g` comes
+    let gap = |rng: &mut ChaCha8Rng| least + rng.random_range(0..=width);
     let (one, two) = (gap(rng), gap(rng));
-    let (least, most) = (2 * rng.random_range(1..=5u64), 2 * rng.random_range(2..=8u64));
     let (from_edge, to) = (["a rise", "g any", "b any"].choose(rng).unwrap(), ["h any", "g any"].choose(rng).unwrap());
-    let timing = if rng.random() { format!("min = {least}") } else { format!("max = {most}") };
+    let min = rng.random_range(1..=12u64);
     read(&format!(
         r#"
 time_unit = "fs"
@@ -180,8 +193,8 @@ p = 0
 [gates]
 g = {{ buf = ["a"], rise = {g}, fall = {g_fall} }}
 h = {{ buf = ["{from}"], rise = {h}, fall = {h_fall} }}
-first = {{ expr = "first | {first}", delay = 2 }}
-second = {{ expr = "second | {second}", delay = 2 }}
+first = {{ expr = "first | {first}", delay = 1 }}
+second = {{ expr = "second | {second}", delay = 1 }}
 [initial]
 g = 0
 h = 0
@@ -210,7 +223,7 @@ state = {{ first = 1, second = 1 }}
 [[rules.timing]]
 from = "{from_edge}"
 to = "{to}"
-{timing}
+min = {min}
 "#
     ))
 }
@@ -220,7 +233,7 @@ to = "{to}"
 fn no_constant_delays_on_a_grid_break_what_takes_changing_ones() {
     let control = Control::default();
     let (mut cases, mut varying, mut constant, mut unknown) = (0, 0, 0, 0);
-    for stream in 0..share(400) {
+    for stream in 0..share(200) {
         let mut rng = ChaCha8Rng::seed_from_u64(83);
         rng.set_stream(stream);
         let scenario = random(&mut rng);
@@ -264,11 +277,13 @@ fn no_constant_delays_on_a_grid_break_what_takes_changing_ones() {
                     assert!(broken(&asked, &scenario, &program, witness).contains(&claim.question), "stream {stream}");
                     constant += 1;
                 }
-                _ => unknown += 1,
+                // edges of one instant in an order that the engine does not know leave timing open
+                _ if asks(claim) == RuleKey::NeverAtRest => unknown += 1,
+                _ => {}
             }
         }
     }
     assert!(cases > share(100), "{cases}");
-    assert!(varying > share(8) && constant > share(50), "{varying} {constant} {unknown}");
+    assert!(varying > share(10) && constant > share(50), "{varying} {constant} {unknown}");
     assert!(unknown * 10 < varying + constant, "{varying} {constant} {unknown}");
 }
