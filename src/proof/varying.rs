@@ -44,11 +44,19 @@ pub(super) type Breaks<'a> = &'a dyn Fn(&Explored, &[u32], Option<&Rest>) -> boo
 /// What a search came to.
 enum Searched {
     /// A case that breaks the claim when it is run, with its trace.
-    Shown { case: Instance, system: System, trace: Vec<Fired>, start: Vec<u64> },
+    Shown(Box<Shown>),
     /// No constant delays do.
     Never,
     /// Neither.
     Open(String),
+}
+
+/// A case with the trace that it goes along.
+struct Shown {
+    case: Instance,
+    system: System,
+    trace: Vec<Fired>,
+    start: Vec<u64>,
 }
 
 /// Constant delays that fit a beginning, by the search's number of the unknown: numerators over one denominator.
@@ -117,7 +125,7 @@ struct Search<'a, 'p> {
     traces: u64,
     /// Why it shows nothing if it finds nothing.
     open: Option<&'static str>,
-    shown: Option<(Instance, System, Vec<Fired>, Vec<u64>)>,
+    shown: Option<Box<Shown>>,
 }
 
 /// Gathers keys that lead to breaches.
@@ -382,7 +390,7 @@ impl Search<'_, '_> {
                     let instance = case(scenario, plant, &system, &point, &trace, &start).instance;
                     let fitted = grouped(scenario, plant, &system, instance);
                     if let Some(instance) = fitted.filter(|it| self.prover.shows(it, self.question)) {
-                        self.shown = Some((instance, system, trace, start));
+                        self.shown = Some(Box::new(Shown { case: instance, system, trace, start }));
                         return true;
                     }
                 }
@@ -488,8 +496,8 @@ impl Prover<'_> {
             let found = explore_heard(&world.plant, &world.starts, watch, mode, &budget, &mut search);
             let (shown, open) = (search.shown, search.open);
             (beginnings, traces) = (beginnings + found.zones, search.traces);
-            if let Some((case, system, trace, start)) = shown {
-                searched = Searched::Shown { case, system, trace, start };
+            if let Some(shown) = shown {
+                searched = Searched::Shown(shown);
                 break;
             }
             let short = match found.ended {
@@ -504,20 +512,20 @@ impl Prover<'_> {
         }
         self.branches = Some(left.saturating_sub(beginnings));
         let race = match &searched {
-            Searched::Shown { system, trace, start, .. } => {
+            Searched::Shown(shown) => {
                 let shows = |case: &Instance| self.shows(case, question);
-                self.deciding(world, system, (trace, start), joint, &shows)
+                self.deciding(world, &shown.system, (&shown.trace, &shown.start), joint, &shows)
             }
             _ => None,
         };
         let anew = self.scenario.plan.vary == Vary::PerEvent;
         let Some(claim) = self.proof.claims.last_mut() else { return };
         match searched {
-            Searched::Shown { case, .. } => {
+            Searched::Shown(shown) => {
                 claim.call = Call::Refuted;
                 claim.variation = Some(Variation::Constant);
                 claim.but_for_ties = joint;
-                claim.witness = Some(Box::new(case));
+                claim.witness = Some(Box::new(shown.case));
                 claim.race = race;
                 claim.reason = None;
             }
