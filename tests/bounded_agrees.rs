@@ -18,7 +18,7 @@ use stillgate::proof::{
     Budget, Ended, Exact, Explored, Mode, Moves, Nothing, Plant, RestVerdict, START, Semantics, Settles, Watch,
     comes_to_rest, explore_under,
 };
-use stillgate::scenario::{Begin, Clock, Place, Scenario};
+use stillgate::scenario::{Begin, Bounce, Clock, Place, Scenario};
 
 use crate::support::grid::{Grid, NO_ORIGIN, Seen};
 use crate::support::small_nets::{SmallNet, every_network};
@@ -47,6 +47,8 @@ struct Met {
     /// Steps whose pattern came, and that never came.
     waited: u64,
     missed: u64,
+    /// Cases in which a contact bounces.
+    bounced: u64,
     finer: u64,
     too_many: u64,
     states: u64,
@@ -73,6 +75,10 @@ enum Rule {
     Follows,
     /// Takes a pattern between the parts of a batch for come.
     Peeks,
+    /// A contact bounces once less.
+    Pairs,
+    /// A contact bounces once more.
+    MorePairs,
 }
 
 type Rules = (Rule, Mode);
@@ -104,6 +110,13 @@ impl Semantics for Rule {
     }
     fn peeks(&self) -> bool {
         *self == Rule::Peeks
+    }
+    fn pairs(&self, most: u32) -> u32 {
+        match self {
+            Rule::Pairs => most - 1,
+            Rule::MorePairs => most + 1,
+            _ => Exact.pairs(most),
+        }
     }
 }
 
@@ -272,6 +285,7 @@ impl Case {
             let came = |rest: &(u32, u32, u32)| rest.0 as usize > s;
             matches!(step.place, Place::When { .. }) && said.rests.iter().any(came)
         }));
+        met.bounced += u64::from(self.world.steps.iter().any(|step| step.bounce.is_some()));
         met.cycles += u64::from(seen.cycle);
         met.tie_cycles += u64::from(seen.cycle && !seen.cycle_apart);
         met.several +=
@@ -428,6 +442,8 @@ struct Kind {
     ties: bool,
     /// The last input is driven by a clock.
     clock: bool,
+    /// Contacts bounce.
+    bounces: bool,
 }
 
 /// Two or three steps of one or two inputs.
@@ -481,6 +497,15 @@ fn steps(world: &mut World, rng: &mut ChaCha8Rng, kind: Kind) {
             }
         }
         world.step(place, &set);
+        if kind.bounces && rng.random_bool(0.7) {
+            let least = rng.random_range(1..=2);
+            skew = least + rng.random_range(0..=1);
+            let fewest = rng.random_range(0..=1);
+            let lasting = DelayRange::between(fs(least), fs(skew));
+            world.steps.last_mut().unwrap().bounce = Some(Bounce { lasting, pulses: (fewest, 1) });
+            latest += skew;
+            continue;
+        }
         skew = if set.len() > 1 && rng.random_bool(0.4) { rng.random_range(1..=3) } else { 0 };
         if skew > 0 {
             world.steps.last_mut().unwrap().skew = Some(DelayRange::between(fs(0), fs(skew)));
@@ -573,7 +598,8 @@ fn scaled(count: u64) -> u64 {
 
 #[test]
 fn steps_at_their_times() {
-    let kind = Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: false };
+    let kind =
+        Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: false };
     let met = random_cases(31, scaled(10_000), kind);
     assert!(met.cut > 20, "{met:?}");
 }
@@ -583,19 +609,20 @@ fn wires() {
     random_cases(
         32,
         scaled(1500),
-        Kind { wires: 0.5, timed: false, power_up: false, waits: false, ties: false, clock: false },
+        Kind { wires: 0.5, timed: false, power_up: false, waits: false, ties: false, clock: false, bounces: false },
     );
     random_cases(
         33,
         scaled(1500),
-        Kind { wires: 0.5, timed: true, power_up: false, waits: false, ties: false, clock: false },
+        Kind { wires: 0.5, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: false },
     );
 }
 
 /// A clock beside one step, at any time, after rest or with skew.
 #[test]
 fn clocks() {
-    let kind = Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: true };
+    let kind =
+        Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: true, bounces: false };
     let met = random_cases(38, scaled(800), kind);
     assert!(met.cut > 20, "{met:?}");
     random_cases(39, scaled(200), Kind { wires: 0.4, power_up: true, ..kind });
@@ -607,19 +634,20 @@ fn any_start() {
     random_cases(
         34,
         scaled(1500),
-        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: false, clock: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: false, clock: false, bounces: false },
     );
     random_cases(
         35,
         scaled(1000),
-        Kind { wires: 0.4, timed: true, power_up: true, waits: false, ties: false, clock: false },
+        Kind { wires: 0.4, timed: true, power_up: true, waits: false, ties: false, clock: false, bounces: false },
     );
 }
 
 /// Steps that wait for a pattern, with and without an end of the wait.
 #[test]
 fn patterns() {
-    let kind = Kind { wires: 0.0, timed: true, power_up: false, waits: true, ties: false, clock: false };
+    let kind =
+        Kind { wires: 0.0, timed: true, power_up: false, waits: true, ties: false, clock: false, bounces: false };
     let met = random_cases(44, scaled(3000), kind);
     assert!(met.waited * 5 > met.cases && met.missed * 10 > met.cases, "{met:?}");
     random_cases(45, scaled(800), Kind { wires: 0.4, power_up: true, ..kind });
@@ -628,18 +656,31 @@ fn patterns() {
     random_cases(47, scaled(300), Kind { clock: true, ..kind });
 }
 
+/// Contacts that bounce, before every kind of step.
+#[test]
+fn bounces() {
+    let kind =
+        Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: true };
+    let met = random_cases(61, scaled(600), kind);
+    assert!(met.bounced * 2 > met.cases, "{met:?}");
+    random_cases(62, scaled(200), Kind { timed: false, ..kind });
+    random_cases(63, scaled(200), Kind { waits: true, power_up: true, ..kind });
+    random_cases(64, scaled(200), Kind { ties: true, power_up: true, ..kind });
+    random_cases(65, scaled(150), Kind { wires: 0.4, ..kind });
+}
+
 /// Everything at once, with exact delays.
 #[test]
 fn ties() {
     random_cases(
         36,
         scaled(3000),
-        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true, clock: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true, clock: false, bounces: false },
     );
     random_cases(
         37,
         scaled(300),
-        Kind { wires: 0.2, timed: true, power_up: true, waits: false, ties: true, clock: false },
+        Kind { wires: 0.2, timed: true, power_up: true, waits: false, ties: true, clock: false, bounces: false },
     );
 }
 
@@ -647,15 +688,26 @@ fn ties() {
 #[test]
 fn a_weaker_rule_is_noticed() {
     let kinds = [
-        Kind { wires: 0.0, timed: false, power_up: false, waits: false, ties: false, clock: false },
-        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: false, clock: false },
-        Kind { wires: 0.5, timed: true, power_up: false, waits: false, ties: false, clock: false },
-        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true, clock: false },
-        Kind { wires: 0.0, timed: true, power_up: true, waits: true, ties: true, clock: false },
+        Kind { wires: 0.0, timed: false, power_up: false, waits: false, ties: false, clock: false, bounces: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: false, clock: false, bounces: false },
+        Kind { wires: 0.5, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true, clock: false, bounces: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: true, ties: true, clock: false, bounces: false },
+        Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: true },
     ];
     let apart = Mode { joint: false, ..TOGETHER };
-    let rules =
-        [Rule::Due, Rule::Cancelled, Rule::Lasts, Rule::Later, Rule::Cools, Rule::Old, Rule::Follows, Rule::Peeks];
+    let rules = [
+        Rule::Due,
+        Rule::Cancelled,
+        Rule::Lasts,
+        Rule::Later,
+        Rule::Cools,
+        Rule::Old,
+        Rule::Follows,
+        Rule::Peeks,
+        Rule::Pairs,
+        Rule::MorePairs,
+    ];
     let weaker = rules.map(|rule| (rule, TOGETHER));
     for rules in weaker.into_iter().chain([(Rule::Right, apart)]) {
         let mut met = Met::default();
@@ -672,10 +724,11 @@ fn a_weaker_rule_is_noticed() {
 #[test]
 fn a_hull_holds_no_less() {
     let kinds = [
-        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: false, clock: false },
-        Kind { wires: 0.5, timed: true, power_up: false, waits: false, ties: false, clock: false },
-        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true, clock: false },
-        Kind { wires: 0.0, timed: true, power_up: true, waits: true, ties: true, clock: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: false, clock: false, bounces: false },
+        Kind { wires: 0.5, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: false, ties: true, clock: false, bounces: false },
+        Kind { wires: 0.0, timed: true, power_up: true, waits: true, ties: true, clock: false, bounces: false },
+        Kind { wires: 0.0, timed: true, power_up: false, waits: false, ties: false, clock: false, bounces: true },
     ];
     let hull = Mode { merge: stillgate::proof::Merge::Hull, ..TOGETHER };
     let (mut met, mut cases, mut more) = (Met::default(), 0, 0);

@@ -12,7 +12,7 @@ use stillgate::engine::End;
 use stillgate::instance::{Instance, Which};
 use stillgate::logic::{Bits, Value};
 use stillgate::proof::{Budget, Ended, Mode, Moves, Plant, START, Settles, explore};
-use stillgate::scenario::{Clock, Mark, Place, Scenario};
+use stillgate::scenario::{Bounce, Clock, Mark, Place, Scenario};
 use stillgate::time::Span;
 
 use crate::support::small_nets::SmallNet;
@@ -31,8 +31,12 @@ struct Met {
     skipped: u64,
 }
 
+fn between(rng: &mut ChaCha8Rng, least: u64, width: u64) -> DelayRange {
+    DelayRange::between(fs(least), fs(least + rng.random_range(0..=width)))
+}
+
 /// A world of 3 to 7 gates with ranges up to 12, sometimes wires, and two to four steps.
-fn world(rng: &mut ChaCha8Rng) -> World {
+fn world(rng: &mut ChaCha8Rng, bounces: bool) -> World {
     let (inputs, gates) = (rng.random_range(1..=2), rng.random_range(3..=7));
     let net = match rng.random() {
         true => SmallNet::random_of_two(rng, inputs, gates),
@@ -57,10 +61,11 @@ fn world(rng: &mut ChaCha8Rng) -> World {
         }
     }
     let mut values: Vec<bool> = world.inputs.iter().map(|(_, bit)| *bit).collect();
+    let mut moving = 0;
     for _ in 0..rng.random_range(2..=4) {
         let place = match rng.random_range(0..3) {
             0 => {
-                let least = rng.random_range(4..20);
+                let least = moving + rng.random_range(4..20);
                 Place::After(DelayRange::between(fs(least), fs(least + rng.random_range(0..=3))))
             }
             _ => Place::Rest(fs(rng.random_range(0..3))),
@@ -73,6 +78,14 @@ fn world(rng: &mut ChaCha8Rng) -> World {
             world.set.last_mut().unwrap().push((format!("i{}", 1 - at), values[1 - at]));
             world.steps.last_mut().unwrap().skew = rng.random_bool(0.5).then(|| DelayRange::between(fs(0), fs(3)));
         }
+        moving = 0;
+        if bounces && rng.random_bool(0.6) {
+            let step = world.steps.last_mut().unwrap();
+            let lasting = between(rng, 1, 8);
+            moving = lasting.max.fs();
+            let fewest = rng.random_range(0..=1);
+            (step.skew, step.bounce) = (None, Some(Bounce { lasting, pulses: (fewest, rng.random_range(1..=2)) }));
+        }
     }
     world
 }
@@ -80,7 +93,7 @@ fn world(rng: &mut ChaCha8Rng) -> World {
 /// The same with two inputs, the first of which is driven by a clock of two or three periods with ranges and jitter.
 fn clocked(rng: &mut ChaCha8Rng) -> World {
     let mut world = loop {
-        let world = world(rng);
+        let world = world(rng, false);
         if world.inputs.len() == 2 {
             break world;
         }
@@ -90,9 +103,6 @@ fn clocked(rng: &mut ChaCha8Rng) -> World {
         value = !value;
         (*set, step.skew) = (vec![("i1".to_string(), value)], None);
     }
-    let between = |rng: &mut ChaCha8Rng, least: u64, width: u64| {
-        DelayRange::between(fs(least), fs(least + rng.random_range(0..=width)))
-    };
     let least = rng.random_range(1..=9);
     let first = between(rng, least, 3);
     let least = rng.random_range(4..=12);
@@ -139,6 +149,20 @@ fn drawn(scenario: &Scenario, rng: &mut ChaCha8Rng, fine: u64) -> Instance {
         };
         if let Some(skew) = step.skew {
             instance.skews[s] = step.set.iter().map(|_| draw(skew)).collect();
+        }
+    }
+    for (s, step) in scenario.stimulus.steps.iter().enumerate() {
+        if let Some(bounce) = &step.bounce {
+            for toggles in &mut instance.bounces[s] {
+                let pairs = rng.random_range(bounce.pulses.0..=bounce.pulses.1);
+                let span = rng.random_range(bounce.lasting.min.fs() * fine..=bounce.lasting.max.fs() * fine);
+                toggles.clear();
+                if pairs > 0 {
+                    toggles.extend((1..2 * pairs).map(|_| Span::from_fs(rng.random_range(0..span))));
+                    toggles.sort_unstable();
+                    toggles.push(Span::from_fs(span));
+                }
+            }
         }
     }
     instance
@@ -291,20 +315,32 @@ fn every_clocked_run_lies_in_the_zones() {
 
 #[test]
 fn every_run_lies_in_the_zones() {
+    let met = simulated(51, 400, false);
+    assert!(met.skipped * 10 < met.worlds && met.figures > met.worlds && met.at_bound > met.worlds / 4, "{met:?}");
+}
+
+/// Contacts that bounce, before steps at rest and at their times.
+#[test]
+fn every_bounce_lies_in_the_zones() {
+    let met = simulated(53, 150, true);
+    assert!(met.skipped * 2 < met.worlds && met.figures > met.worlds && met.moved > met.worlds, "{met:?}");
+}
+
+fn simulated(seed: u64, count: u64, bounces: bool) -> Met {
     let percent: u64 = std::env::var("STILLGATE_CASES").ok().and_then(|text| text.parse().ok()).unwrap_or(100);
     let mut met = Met::default();
-    for stream in 0..400 * percent / 100 {
-        let mut rng = ChaCha8Rng::seed_from_u64(51);
+    for stream in 0..count * percent / 100 {
+        let mut rng = ChaCha8Rng::seed_from_u64(seed);
         rng.set_stream(stream);
-        let world = world(&mut rng);
+        let world = world(&mut rng, bounces);
         let inputs: Vec<bool> = world.inputs.iter().map(|(_, bit)| *bit).collect();
         for rest in stable_states(&world.scenario().circuit, &inputs).iter().take(1) {
             if let Err(error) = check(&world, rest, &mut rng, &mut met) {
                 let start: Vec<bool> =
                     (inputs.len()..inputs.len() + world.gates.len()).map(|net| rest.get(net)).collect();
-                panic!("seed 51, stream {stream}: {error}\n{}", written::scenario(&world, &start));
+                panic!("seed {seed}, stream {stream}: {error}\n{}", written::scenario(&world, &start));
             }
         }
     }
-    assert!(met.skipped * 10 < met.worlds && met.figures > met.worlds && met.at_bound > met.worlds / 4, "{met:?}");
+    met
 }

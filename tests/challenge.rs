@@ -255,7 +255,7 @@ fn demonstrations_agree() {
         ("permit", [14, 2, 2, 0], 0),
         ("power-up", [9, 1, 0, 0], 0),
         ("pulse-train", [1, 0, 0, 2], 0),
-        ("push-button", [0, 0, 0, 16], 0),
+        ("push-button", [5, 2, 9, 0], 0),
         ("selector", [9, 1, 0, 0], 0),
         ("selector-cured", [10, 0, 0, 0], 0),
     ];

@@ -23,8 +23,7 @@ use stillgate::logic::Bits;
 use stillgate::output::flow_map::{self, Map};
 use stillgate::output::text::{self, Page, Style};
 use stillgate::output::waves::{self, Picture};
-use stillgate::output::{bundle, charts, flow_tables, json, tables};
-use stillgate::output::{margin_charts, margins};
+use stillgate::output::{bundle, charts, flow_tables, json, margin_charts, margins, sensitivity, shares, tables};
 use stillgate::review::{RunReport, StatesReport};
 use stillgate::scenario::{Plot, RefNet, Reference, Scenario};
 use stillgate::statics::{Change, Race};
@@ -300,11 +299,16 @@ fn the_files_of_a_review() {
         "waves-glitch-open-lower-together.csv",
         "waves-glitch-open-lower-together.vcd",
         "causes.csv",
+        "sensitivity.svg",
+        "sensitivity.csv",
         "case-never-open-upper-1-open-lower-1-together.toml",
         "case-critical-race-together.toml",
         "refuted-1.toml",
         "settling.svg",
         "settling.csv",
+        "settling-figures.csv",
+        "shares.svg",
+        "shares.csv",
         "outcomes.csv",
         "findings.csv",
         "rules.csv",
@@ -409,11 +413,24 @@ fn every_picture_is_well_formed() {
 }
 
 #[test]
+fn shares_chart() {
+    let scenario = lock();
+    let asked = Asked::of(&scenario);
+    let report = results::sweep(&scenario, &asked);
+    let svg = shares::svg(&scenario, &asked, &report);
+    well_formed(&svg);
+    well_formed(&shares::svg(&scenario, &asked, &results::sweep_of_nothing(&scenario)));
+    golden("shares.svg", &svg);
+    golden("shares.csv", &shares::csv(&scenario, &asked, &report));
+}
+
+#[test]
 fn settling_chart() {
     let scenario = lock();
     let report = results::sweep(&scenario, &Asked::of(&scenario));
     golden("settling.svg", &charts::settling(&scenario, &report));
     golden("settling.csv", &tables::settling(&scenario, &report));
+    golden("settling-figures.csv", &tables::settling_figures(&scenario, &report, None));
 }
 
 #[test]
@@ -446,6 +463,13 @@ fn lists() {
     let bundle = bundle::of_review(&scenario, &review, &Page::default());
     let causes = bundle.files.iter().find(|file| file.name == "causes.csv").unwrap();
     golden("causes.csv", std::str::from_utf8(&causes.bytes).unwrap());
+    let svg = sensitivity::svg(&scenario, &review).unwrap();
+    well_formed(&svg);
+    golden("sensitivity.svg", &svg);
+    golden("sensitivity.csv", &sensitivity::csv(&scenario, &review).unwrap());
+    let proved = charts::settling_with(&scenario, &review.sweep, review.proof.as_ref());
+    well_formed(&proved);
+    golden("settling-proved.svg", &proved);
     golden("rules.csv", &tables::rules(&scenario, &review.sweep, None));
     golden("states.csv", &flow_tables::states(&scenario, &review.states));
     golden("transitions.csv", &flow_tables::transitions(&scenario, &review.states));

@@ -321,7 +321,12 @@ fn a_latch_survives_a_bouncing_button_and_a_counter_does_not() {
     };
     let latch = "q = { nor = [\"reset\", \"qn\"] }\nqn = { nor = [\"button\", \"q\"] }";
     let review = reviewed(&text(latch, "q = 0", "q = 1, qn = 1"));
-    assert_eq!(review.verdict.call, Call::NoFailureFound, "{:?}", review.verdict.reasons);
+    // no draw has more; but two toggles some 10 ns apart could let qn go and take it back, which only the proof finds
+    let broken: Vec<_> = review.sweep.findings.iter().filter(|it| it.breaks_rule).collect();
+    let [rare] = broken.as_slice() else { panic!("{broken:?}") };
+    assert!(rare.rare && rare.count == 0 && rare.subject.kind == Kind::Edges, "{rare:?}");
+    let qn = review.sweep.scenario.circuit.net("qn");
+    assert_eq!(rare.subject.net, qn);
 
     let toggle = "n1 = { nand = [\"n4\", \"n2\"] }\nn2 = { nand = [\"n1\", \"button\"] }\n\
         n3 = { nand = [\"n2\", \"button\", \"n4\"] }\nn4 = { nand = [\"n3\", \"qn\"] }\n\

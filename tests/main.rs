@@ -3,12 +3,14 @@
 #![allow(clippy::unwrap_used)] // a helper that fails is a test that fails
 
 mod boards;
+mod bounced;
 mod bounded;
 mod bounded_agrees;
 mod bounded_cycles;
 mod bounded_simulated;
 mod causes;
 mod challenge;
+mod charts;
 mod commands;
 mod conditions;
 mod coverage;

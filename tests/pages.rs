@@ -148,6 +148,7 @@ fn check(name: &str, page: &str, review: &Review, scenario: &Scenario) {
         assert!(checked.contains(&word), "{name}: {word} is not in {checked}");
     }
     findings(name, &html, review, scenario);
+    charts(name, &html, review);
     data(name, &html, review, scenario);
 }
 
@@ -174,6 +175,30 @@ fn findings(name: &str, html: &Html, review: &Review, scenario: &Scenario) {
             (None, None) => continue,
         };
         assert!(told.contains(&replay), "{name}: {replay} is not in {told}");
+    }
+}
+
+/// All shares come before the findings, and what decides after them; each only where there is something to show.
+fn charts(name: &str, html: &Html, review: &Review) {
+    let sweep = &review.sweep;
+    let shares = !sweep.findings.is_empty() || sweep.at_most.is_some() || sweep.unseen.is_some();
+    let decides = review.why.iter().flatten().any(|why| why.pull.is_some());
+    let order: Vec<&str> = all(html, "#findings > article, #findings > figure > .picture > svg")
+        .iter()
+        .map(|it| it.attr("id").unwrap())
+        .map(|id| if id.starts_with("finding-") { "finding" } else { id })
+        .collect();
+    let findings = all(html, "#findings > article").len();
+    let mut wanted = vec!["shares"; usize::from(shares)];
+    wanted.extend(vec!["finding"; findings]);
+    wanted.extend(vec!["sensitivity"; usize::from(decides)]);
+    assert_eq!(order, wanted, "{name}");
+    for (id, files) in
+        [("shares", ["shares.svg", "shares.csv"]), ("sensitivity", ["sensitivity.svg", "sensitivity.csv"])]
+    {
+        for caption in all(html, &format!("#figure-{id} figcaption")) {
+            assert!(files.iter().all(|file| text(caption).contains(file)), "{name}: {}", text(caption));
+        }
     }
 }
 

@@ -1,6 +1,6 @@
 //! The proof against every case on a grid: small circuits whose delays and waits are all run, half of each unit apart. No case
 //! breaks what is proved, and what every case keeps is seldom left undecided. Asked are tolerated glitches, wanted
-//! oscillations and patterns that steps wait for.
+//! oscillations, patterns that steps wait for and contacts that bounce.
 
 use std::collections::BTreeMap;
 use std::sync::Arc;
@@ -14,7 +14,7 @@ use stillgate::engine::Program;
 use stillgate::findings::{Answers, Asked, Judge};
 use stillgate::instance::{Instance, Which};
 use stillgate::proof::{Call, Spend, prove};
-use stillgate::scenario::{GlitchFree, Mark, Oscillation, Place, Scenario};
+use stillgate::scenario::{Bounce, GlitchFree, Mark, Oscillation, Place, Scenario};
 use stillgate::time::Span;
 
 use crate::support::share;
@@ -32,6 +32,31 @@ const UNIT: u64 = 2;
 enum At {
     Gate(usize, usize),
     Place(usize),
+    /// One of the bounces of an input of a step.
+    Bounce(usize),
+}
+
+/// All bounces of an input on the grid: of 2k toggles the last comes at the end of the span, the others before it.
+fn bounces(bounce: &Bounce) -> Vec<Vec<Span>> {
+    let mut all = Vec::new();
+    for pairs in bounce.pulses.0..=bounce.pulses.1 {
+        if pairs == 0 {
+            all.push(Vec::new());
+            continue;
+        }
+        for span in bounce.lasting.min.fs()..=bounce.lasting.max.fs() {
+            let mut some: Vec<Vec<Span>> = vec![Vec::new()];
+            for _ in 1..2 * pairs {
+                let from = |it: &Vec<Span>| it.last().map_or(0, |last| last.fs());
+                let longer = |it: &Vec<Span>| {
+                    (from(it)..span).map(|at| it.iter().copied().chain([fs(at)]).collect()).collect::<Vec<Vec<Span>>>()
+                };
+                some = some.iter().flat_map(longer).collect();
+            }
+            all.extend(some.into_iter().map(|it| it.into_iter().chain([fs(span)]).collect()));
+        }
+    }
+    all
 }
 
 fn range(rng: &mut ChaCha8Rng, from: u64, width: u64) -> DelayRange {
@@ -40,7 +65,7 @@ fn range(rng: &mut ChaCha8Rng, from: u64, width: u64) -> DelayRange {
 }
 
 /// Two or three gates, a step at rest, and often one that waits for a pattern.
-fn world(rng: &mut ChaCha8Rng) -> World {
+fn world(rng: &mut ChaCha8Rng, bounces: bool) -> World {
     let gates = rng.random_range(2..=3);
     let net = SmallNet::random_of_two(rng, 1, gates);
     let mut world = World::new();
@@ -68,6 +93,13 @@ fn world(rng: &mut ChaCha8Rng) -> World {
         let timeout = rng.random_bool(0.5).then(|| fs(UNIT * rng.random_range(1..=10)));
         world.step(Place::When { pattern, wait, timeout }, &[("i0", !first)]);
     }
+    if bounces {
+        let least = rng.random_range(1..=3);
+        let lasting = DelayRange::between(fs(UNIT * least), fs(UNIT * (least + rng.random_range(0..=1))));
+        let fewest = rng.random_range(0..=1);
+        let step = rng.random_range(0..world.steps.len());
+        world.steps[step].bounce = Some(Bounce { lasting, pulses: (fewest, rng.random_range(1..=2)) });
+    }
     world
 }
 
@@ -94,6 +126,10 @@ fn choices(scenario: &Scenario) -> Vec<(At, DelayRange)> {
         if let Place::When { wait, .. } = &step.place {
             all.push((At::Place(s), *wait));
         }
+        if let Some(bounce) = &step.bounce {
+            let ways = bounces(bounce).len() as u64;
+            all.push((At::Bounce(s), DelayRange::between(fs(0), fs(ways - 1))));
+        }
     }
     all
 }
@@ -101,6 +137,8 @@ fn choices(scenario: &Scenario) -> Vec<(At, DelayRange)> {
 /// How often each question of a scenario is broken by the cases on the grid.
 fn broken(scenario: &Scenario, program: &Program, asked: &Asked) -> Option<Vec<u64>> {
     let choices = choices(scenario);
+    let of = |step: &stillgate::scenario::Step| step.bounce.as_ref().map_or_else(Vec::new, bounces);
+    let bounces: Vec<Vec<Vec<Span>>> = scenario.stimulus.steps.iter().map(of).collect();
     let count: usize = choices.iter().map(|(_, range)| (range.max.fs() - range.min.fs() + 1) as usize).product();
     if count > CASES {
         return None;
@@ -116,6 +154,7 @@ fn broken(scenario: &Scenario, program: &Program, asked: &Asked) -> Option<Vec<u
             match at {
                 At::Gate(gate, edge) => instance.delays.gate[*gate][*edge] = value,
                 At::Place(step) => instance.places[*step] = value,
+                At::Bounce(step) => instance.bounces[*step][0].clone_from(&bounces[*step][value.fs() as usize]),
             }
         }
         let mut judge = Judge::new(scenario, asked, Answers::default());
@@ -131,13 +170,26 @@ fn broken(scenario: &Scenario, program: &Program, asked: &Asked) -> Option<Vec<u
 
 #[test]
 fn no_case_on_a_grid_breaks_what_is_proved() {
+    let cases = compared(71, share(2500), false);
+    assert!(cases > share(1200), "{cases}");
+}
+
+/// Contacts that bounce in every way that the grid has.
+#[test]
+fn no_bounce_on_a_grid_breaks_what_is_proved() {
+    let cases = compared(72, share(1500), true);
+    assert!(cases > share(400), "{cases}");
+}
+
+/// Compares so many worlds; how many were small enough.
+fn compared(seed: u64, count: u64, bounces: bool) -> u64 {
     // by rule: proved, refuted and met on the grid, refuted only off it, undecided and met, undecided and not met
     let mut met: BTreeMap<&str, [u64; 5]> = BTreeMap::new();
     let mut cases = 0;
-    for stream in 0..share(2500) {
-        let mut rng = ChaCha8Rng::seed_from_u64(71);
+    for stream in 0..count {
+        let mut rng = ChaCha8Rng::seed_from_u64(seed);
         rng.set_stream(stream);
-        let world = world(&mut rng);
+        let world = world(&mut rng, bounces);
         let mut scenario = world.scenario();
         asks(&mut scenario, &mut rng);
         let Some(rest) = stable_states(&scenario.circuit, &[world.inputs[0].1]).into_iter().next() else { continue };
@@ -168,11 +220,11 @@ fn no_case_on_a_grid_breaks_what_is_proved() {
             met.entry(question.rule.word()).or_default()[place] += 1;
         }
     }
-    assert!(cases > share(1200), "{cases}");
     for rule in ["glitch_free", "oscillation", "when"] {
         let [proved, refuted, off, known, open] = met[rule];
         let all = proved + refuted + off + known + open;
         assert!(proved * 20 > all && refuted * 50 > all, "{rule}: {met:?}");
         assert!(known * 50 < all && open * 20 < all && off * 50 < all, "{rule}: {met:?}");
     }
+    cases
 }

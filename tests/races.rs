@@ -53,6 +53,9 @@ pub fn names(scenario: &Scenario, sum: &Sum) -> Vec<String> {
         stillgate::proof::Quantity::Period(clock) => format!("period {clock}"),
         stillgate::proof::Quantity::High(clock) => format!("high {clock}"),
         stillgate::proof::Quantity::Jitter(clock, edge) => format!("jitter {clock} {edge}"),
+        stillgate::proof::Quantity::Toggle { step, net, number, .. } => {
+            format!("toggle {} {} {}", number + 1, step + 1, circuit.name(net))
+        }
         stillgate::proof::Quantity::Late(step, net) => format!("late {} {}", step + 1, circuit.name(net)),
     };
     let mut names: Vec<String> = sum.terms.iter().map(|(of, times)| name(*of).repeat(*times as usize)).collect();

@@ -13,8 +13,10 @@ pub use crate::output::pictures::MOST_PICTURES;
 use crate::output::search::case_files;
 use crate::output::text::Page;
 use crate::output::waves::{self, Nets, Picture};
-use crate::output::{margin_charts, margins};
-use crate::output::{causes, charts, convergence, dump, flow_tables, json, page, pictures, tables, words};
+use crate::output::{
+    causes, charts, convergence, dump, flow_tables, json, margin_charts, margins, page, pictures, sensitivity, shares,
+    tables, words,
+};
 use crate::proof::Proof;
 use crate::review::{Review, RunReport, StatesReport};
 use crate::scenario::Scenario;
@@ -160,16 +162,25 @@ pub fn of_run(
     bundle
 }
 
-/// The files of a sweep: settling times, outcomes, findings, rules, conditions if there are any.
+/// The files of a sweep: settling times, shares, outcomes, findings, rules, conditions if there are any.
 pub fn of_sweep(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> Bundle {
-    of_searched(scenario, asked, report, None)
+    of_searched(scenario, asked, report, None, None)
 }
 
-/// The files of a sweep, with what a directed search met.
-fn of_searched(scenario: &Scenario, asked: &Asked, report: &SweepReport, search: Option<&SearchReport>) -> Bundle {
+/// The files of a sweep, with what a directed search met and what is proved.
+fn of_searched(
+    scenario: &Scenario,
+    asked: &Asked,
+    report: &SweepReport,
+    search: Option<&SearchReport>,
+    proof: Option<&Proof>,
+) -> Bundle {
     let mut bundle = Bundle::default();
-    bundle.add("settling.svg", charts::settling(scenario, report));
+    bundle.add("settling.svg", charts::settling_with(scenario, report, proof));
     bundle.add("settling.csv", tables::settling(scenario, report));
+    bundle.add("settling-figures.csv", tables::settling_figures(scenario, report, proof));
+    bundle.add("shares.svg", shares::svg(scenario, asked, report));
+    bundle.add("shares.csv", shares::csv(scenario, asked, report));
     bundle.add("outcomes.csv", tables::outcomes(scenario, report));
     bundle.add("findings.csv", tables::findings(scenario, asked, report));
     bundle.add("rules.csv", tables::rules(scenario, report, search));
@@ -193,7 +204,7 @@ fn of_searched(scenario: &Scenario, asked: &Asked, report: &SweepReport, search:
 }
 
 /// The files of a review: `result.json`, `report.html` (see [`page`]), `waves-typical`, a `waves-<kind>-<net or pattern>-<step>` for each of the worst
-/// findings whose failing case was run (at most [`MOST_PICTURES`]), `causes.csv` and a `case-<kind>-<net or
+/// findings whose failing case was run (at most [`MOST_PICTURES`]), `causes.csv`, `sensitivity.svg` and `.csv`, and a `case-<kind>-<net or
 /// pattern>-<step>.toml` for each finding that was looked into, `worst-<n>.toml` for the cases that only the directed
 /// search met, `refuted-<n>.toml` for those that refute a claim of the proof, the files of the sweep and of the flow table.
 /// Commands that replay a case are those of `told`.
@@ -220,6 +231,10 @@ pub fn of_review(scenario: &Scenario, review: &Review, told: &Page<'_>) -> Bundl
     if let Some(table) = causes::table(scenario, review) {
         bundle.add("causes.csv", table);
     }
+    if let (Some(picture), Some(table)) = (sensitivity::svg(scenario, review), sensitivity::csv(scenario, review)) {
+        bundle.add("sensitivity.svg", picture);
+        bundle.add("sensitivity.csv", table);
+    }
     for (file, why) in causes::case_files(scenario, review).into_iter().zip(&review.why) {
         if let (Some(file), Some(needs)) = (file, why.as_ref().and_then(|why| why.needs.as_ref())) {
             bundle.add(&file, write_instance(&needs.case, scenario));
@@ -237,7 +252,7 @@ pub fn of_review(scenario: &Scenario, review: &Review, told: &Page<'_>) -> Bundl
     if let Some(proof) = &review.proof {
         bundle.add_witnesses(scenario, proof);
     }
-    let sweep = of_searched(scenario, &review.asked, &review.sweep, review.search.as_ref());
+    let sweep = of_searched(scenario, &review.asked, &review.sweep, review.search.as_ref(), review.proof.as_ref());
     bundle.files.extend(sweep.files);
     bundle.notes.extend(sweep.notes);
     bundle.files.extend(of_states(scenario, &review.states).files);

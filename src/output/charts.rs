@@ -4,9 +4,12 @@ use plotters::coord::Shift;
 use plotters::prelude::*;
 use plotters::style::text_anchor::{HPos, Pos, VPos};
 
+use crate::output::far::Far;
+use crate::output::fitted::Fitted;
 use crate::output::ink;
-use crate::output::measure::{cut_end, width};
+use crate::output::measure::width;
 use crate::output::words;
+use crate::proof::Proof;
 use crate::scenario::Scenario;
 use crate::sweep::{Settling, SweepReport, WindowReport};
 use crate::time::{Span, Unit};
@@ -26,9 +29,16 @@ pub(super) type Area<'a> = DrawingArea<SVGBackend<'a>, Shift>;
 pub(super) type Drawn = Result<(), DrawingAreaErrorKind<std::io::Error>>;
 
 /// Settling-time histograms, one panel a step, at most [`MOST_PANELS`]; the caption names what is left out. Lines mark
-/// median, 99th percentile and the limit from the rules. [`tables::settling`](crate::output::tables::settling) has the
-/// numbers.
+/// median, 99th percentile and the limit from the rules. Where some windows settle, or lines lie, far beyond the others the
+/// axis has a break, and what is behind it stands in its order, but not to scale.
+/// [`tables::settling`](crate::output::tables::settling) and [`tables::settling_figures`](crate::output::tables::settling_figures)
+/// have the numbers.
 pub fn settling(scenario: &Scenario, report: &SweepReport) -> String {
+    settling_with(scenario, report, None)
+}
+
+/// The same, with a line at the greatest settling time that a proof has for each step.
+pub fn settling_with(scenario: &Scenario, report: &SweepReport, proof: Option<&Proof>) -> String {
     let panels: Vec<(&WindowReport, &Settling)> = report
         .windows
         .iter()
@@ -38,33 +48,35 @@ pub fn settling(scenario: &Scenario, report: &SweepReport) -> String {
     let shown = &panels[..panels.len().min(MOST_PANELS)];
     let rows = shown.len().div_ceil(2) as u32;
     let size = (2 * PANEL.0, HEAD + rows.max(1) * PANEL.1 + if panels.len() > shown.len() { 24 } else { 4 });
-    let mut svg = String::new();
+    let (mut svg, mut texts) = (String::new(), Fitted::default());
     {
         let root = SVGBackend::with_string(&mut svg, size).into_drawing_area();
-        draw(&root, scenario, report, shown, &panels[shown.len()..]).expect("drawing into memory");
+        draw(&root, &mut texts, scenario, report, proof, shown, &panels[shown.len()..]).expect("drawing into memory");
     }
-    let alternative = alternative(scenario, shown);
-    svg.replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
+    let alternative = alternative(scenario, shown, proof);
+    texts.titled(svg).replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
 }
 
 fn draw(
     root: &Area<'_>,
+    texts: &mut Fitted,
     scenario: &Scenario,
     report: &SweepReport,
+    proof: Option<&Proof>,
     shown: &[(&WindowReport, &Settling)],
     left_out: &[(&WindowReport, &Settling)],
 ) -> Drawn {
     root.fill(&WHITE)?;
     let draws = words::count(report.samples);
-    let title = words::clean(&format!("{}: settling time (Monte Carlo, {draws} draws)", scenario.title));
-    let title = cut_end(&title, 14.0, (2.0 * f64::from(PANEL.0) - 24.0) / 1.15).unwrap_or(title);
+    let title = format!("{}: settling time (Monte Carlo, {draws} draws)", scenario.title);
+    let title = texts.end(&title, 14.0, (2.0 * f64::from(PANEL.0) - 24.0) / 1.15);
     let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
     root.draw(&Text::new(title, (12, 8), bold))?;
     for (i, (window, settling)) in shown.iter().enumerate() {
         let (column, row) = (i as u32 % 2, i as u32 / 2);
         let corner = ((column * PANEL.0) as i32, (HEAD + row * PANEL.1) as i32);
         let area = root.clone().shrink(corner, PANEL);
-        panel(&area, scenario, window, settling)?;
+        panel(&area, texts, scenario, proof, window, settling)?;
     }
     if shown.is_empty() {
         root.draw(&Text::new("No window settled.", (12, HEAD as i32), small()))?;
@@ -72,7 +84,7 @@ fn draw(
     if !left_out.is_empty() {
         let steps: Vec<&str> = left_out.iter().filter_map(|it| words::step(scenario, Some(it.0.moment))).collect();
         let note = format!("Left out, but in settling.csv: {}", steps.join(", "));
-        let note = cut_end(&note, ink::SMALL, 2.0 * f64::from(PANEL.0) - 24.0).unwrap_or(note);
+        let note = texts.end(&note, ink::SMALL, 2.0 * f64::from(PANEL.0) - 24.0);
         let y = HEAD + (shown.len().div_ceil(2) as u32) * PANEL.1 + 4;
         root.draw(&Text::new(note, (12, y as i32), small()))?;
     }
@@ -80,26 +92,37 @@ fn draw(
 }
 
 /// One histogram.
-fn panel(area: &Area<'_>, scenario: &Scenario, window: &WindowReport, settling: &Settling) -> Drawn {
-    let marks = marks(scenario, window, settling);
+fn panel(
+    area: &Area<'_>,
+    texts: &mut Fitted,
+    scenario: &Scenario,
+    proof: Option<&Proof>,
+    window: &WindowReport,
+    settling: &Settling,
+) -> Drawn {
+    let mut marks = marks(scenario, window, settling);
+    marks.extend(proved(proof, window.moment).map(|(at, label)| Mark { at, label, ink: ink::REST }));
+    let far = Far::of(settling, &mut marks);
     let longest = marks.iter().map(|mark| mark.at).chain(settling.bars.iter().map(|bar| bar.1)).max();
     let unit = fitting(longest.unwrap_or_default(), scenario.unit);
     let value = |span: Span| span.fs() as f64 / unit.femtoseconds() as f64;
-    let bars = &settling.bars;
+    let bars = far.common(settling);
     let (first, last) = (value(bars[0].0), value(bars[bars.len() - 1].1));
-    let low = marks.iter().map(|mark| value(mark.at)).fold(first, f64::min);
-    let high = marks.iter().map(|mark| value(mark.at)).fold(last, f64::max);
-    let margin = ((high - low) * 0.04).max(high * 1e-3).max(1e-9);
+    let near = || marks.iter().filter(|mark| !far.has(mark.at)).map(|mark| value(mark.at));
+    let (low, high) = (near().fold(first, f64::min), near().fold(last, f64::max));
+    let margin = ((high - low) * 0.04).max(high * 1e-3 * f64::from(u8::from(bars.len() == 1))).max(1e-9);
     let range = (low - margin).max(0.0)..high + margin;
+    let digits = digits(&range);
     let tallest = bars.iter().map(|bar| bar.2).max().unwrap_or(1);
 
-    let label = words::clean(words::step(scenario, Some(window.moment)).unwrap_or_default());
-    let caption = cut_end(&label, ink::BODY, f64::from(PANEL.0) - 60.0).unwrap_or(label);
+    let label = words::step(scenario, Some(window.moment)).unwrap_or_default();
+    let caption = texts.end(label, ink::BODY, f64::from(PANEL.0) - 80.0);
     area.draw(&Text::new(caption, (70, 0), ("sans-serif", ink::BODY * 1.24).into_font().color(&rgb(ink::INK))))?;
     let mut chart = ChartBuilder::on(area)
         .margin_top(18 + 14 * marks.len() as u32)
-        .margin_right(16)
+        .margin_right(16 + far.width())
         .margin_left(10)
+        .margin_bottom(8)
         .set_label_area_size(LabelAreaPosition::Left, 60)
         .set_label_area_size(LabelAreaPosition::Bottom, 42)
         .build_cartesian_2d(range, 0.0..tallest as f64 * 1.05)?;
@@ -112,7 +135,10 @@ fn panel(area: &Area<'_>, scenario: &Scenario, window: &WindowReport, settling: 
         .axis_desc_style(small())
         .x_labels(7)
         .y_labels(4)
-        .x_label_formatter(&|x| words::three(*x))
+        .x_label_formatter(&|x| match digits {
+            Some(digits) => format!("{x:.digits$}"),
+            None => words::three(*x),
+        })
         .y_label_formatter(&|y| words::count(*y as u64))
         .x_desc(format!("settling time [{unit}]"))
         .y_desc("draws")
@@ -127,12 +153,19 @@ fn panel(area: &Area<'_>, scenario: &Scenario, window: &WindowReport, settling: 
         chart.draw_series(bars.iter().map(|it| Rectangle::new(bar(it), line)))?;
     }
     let origin = area.get_base_pixel();
-    let place = |at: Span| chart.backend_coord(&(value(at), 0.0));
-    let bottom = place(Span::ZERO).1 - origin.1;
+    let at = |x: f64, y: f64| {
+        let place = chart.backend_coord(&(x, y));
+        (place.0 - origin.0, place.1 - origin.1)
+    };
+    let bottom = at(low, 0.0).1;
+    let edge = at(high + margin, 0.0).0;
+    let place = |span: Span| far.place(span, edge).unwrap_or_else(|| at(value(span), 0.0).0);
+    let count = settling.bars.last().map_or(0.0, |bar| bar.2 as f64).min(tallest as f64);
+    far.draw(area, edge, bottom, bottom - at(low, count).1)?;
     let boxes: Vec<(f64, f64)> =
-        marks.iter().map(|mark| (f64::from(place(mark.at).0 - origin.0), width(&mark.label, ink::SMALL))).collect();
+        marks.iter().map(|mark| (f64::from(place(mark.at)), width(&mark.label, ink::SMALL))).collect();
     for (mark, spot) in marks.iter().zip(spots(&boxes, f64::from(PANEL.0))) {
-        let x = place(mark.at).0 - origin.0;
+        let x = place(mark.at);
         let y = 20 + 14 * spot.row as i32;
         area.draw(&PathElement::new(vec![(x, y + 2), (x, bottom)], rgb(mark.ink).stroke_width(2)))?;
         let (at, side) = if spot.leftwards { (x - 5, HPos::Right) } else { (x + 5, HPos::Left) };
@@ -180,11 +213,17 @@ fn spots(lines: &[(f64, f64)], room: f64) -> Vec<Spot> {
     best.1
 }
 
+/// Decimals of the numbers on an axis that begins far from 0 for its length; `None`: three digits will do.
+fn digits(range: &std::ops::Range<f64>) -> Option<usize> {
+    let length = range.end - range.start;
+    (length * 100.0 < range.end).then(|| libm::ceil(1.0 - libm::log10(length)).clamp(0.0, 9.0) as usize)
+}
+
 /// A labelled vertical line.
-struct Mark {
-    at: Span,
-    label: String,
-    ink: &'static str,
+pub(super) struct Mark {
+    pub at: Span,
+    pub label: String,
+    pub ink: &'static str,
 }
 
 fn marks(scenario: &Scenario, window: &WindowReport, settling: &Settling) -> Vec<Mark> {
@@ -200,8 +239,17 @@ fn marks(scenario: &Scenario, window: &WindowReport, settling: &Settling) -> Vec
     marks
 }
 
+/// The greatest settling time that is proved for a moment, and its label.
+fn proved(proof: Option<&Proof>, moment: u32) -> Option<(Span, String)> {
+    let window = proof?.windows.iter().find(|window| window.moment == moment)?;
+    let (_, most) = window.settling?;
+    let below = if window.settling_below { "below " } else { "" };
+    let ties = if window.settling_but_for_ties { ", but for ties" } else { "" };
+    Some((most, format!("proved bound {below}{}{ties}", most.rounded())))
+}
+
 /// The settling limit of a moment, if the rules have one.
-fn limit(scenario: &Scenario, moment: u32) -> Option<Span> {
+pub(super) fn limit(scenario: &Scenario, moment: u32) -> Option<Span> {
     let moment = scenario.stimulus.moments.get(moment as usize)?;
     let own = scenario.stimulus.step_of(moment).and_then(|step| step.settle_within);
     own.or(scenario.rules.settle_within)
@@ -227,10 +275,11 @@ pub(super) fn rgb(ink: &str) -> RGBColor {
 }
 
 /// The chart in words, fit for an attribute.
-fn alternative(scenario: &Scenario, shown: &[(&WindowReport, &Settling)]) -> String {
+fn alternative(scenario: &Scenario, shown: &[(&WindowReport, &Settling)], proof: Option<&Proof>) -> String {
     let each = shown.iter().map(|(window, settling)| {
         let step = words::step(scenario, Some(window.moment)).unwrap_or_default();
-        format!("{step}: median {}, 99th percentile {}", settling.median.rounded(), settling.p99.rounded())
+        let bound = proved(proof, window.moment).map_or_else(String::new, |(_, label)| format!(", {label}"));
+        format!("{step}: median {}, 99th percentile {}{bound}", settling.median.rounded(), settling.p99.rounded())
     });
     let text = format!("Settling time. {}.", each.collect::<Vec<_>>().join("; "));
     let markup = maud::html! { (words::clean(&text)) };

@@ -176,7 +176,7 @@ fn draw(
 }
 
 /// The part of a log axis that shows some numbers above 0, with a little room at both ends.
-fn stretch(numbers: impl Iterator<Item = f64> + Clone) -> (f64, f64) {
+pub(super) fn stretch(numbers: impl Iterator<Item = f64> + Clone) -> (f64, f64) {
     let low = numbers.clone().fold(f64::INFINITY, f64::min);
     let high = numbers.fold(0.0, f64::max);
     let room = 0.05 * libm::log10(high / low).max(0.1);
@@ -185,7 +185,7 @@ fn stretch(numbers: impl Iterator<Item = f64> + Clone) -> (f64, f64) {
 
 /// Round numbers on a log axis from 10^`from` to 10^`to`, rising: decades; of few decades also twice and five times each; of
 /// less than one, round steps.
-fn ticks(from: f64, to: f64) -> Vec<f64> {
+pub(super) fn ticks(from: f64, to: f64) -> Vec<f64> {
     let inside = |tick: &f64| (from..=to).contains(&libm::log10(*tick));
     let (first, last) = (libm::floor(from) as i32, libm::ceil(to) as i32);
     // divided, and not multiplied by a power below 1, so that labels are round

@@ -30,6 +30,11 @@ pub(super) fn quantity(scenario: &Scenario, quantity: Quantity) -> String {
         Quantity::Jitter(clock, edge) => {
             format!("edge {} of {} after its earliest", edge + 1, clock_name(scenario, clock))
         }
+        Quantity::Toggle { step, net, number, last } => {
+            let label = &scenario.stimulus.steps[step as usize].label;
+            let which = if last { "last toggle".to_string() } else { format!("toggle {}", number + 1) };
+            format!("{which} of {} in \"{label}\"", words::net(scenario, net))
+        }
         Quantity::Late(step, net) => {
             let label = &scenario.stimulus.steps[step as usize].label;
             format!("lateness of {} in \"{label}\"", words::net(scenario, net))

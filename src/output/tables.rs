@@ -2,12 +2,14 @@
 
 use crate::findings::{Asked, Reason};
 use crate::logic::Value;
+use crate::output::charts;
 use crate::output::words::{self, six};
+use crate::proof::Proof;
 use crate::review::{Cell, Compared, compare, departure_words};
 use crate::scenario::{Condition, Scenario};
 use crate::search::SearchReport;
 use crate::sweep::{Envelope, SweepReport, Worst};
-use crate::time::Decimal;
+use crate::time::{Decimal, Span};
 
 /// Writes a table into memory, where only rows of unequal length could fail; the tables here have none.
 pub(super) fn write(rows: impl FnOnce(&mut csv::Writer<Vec<u8>>) -> csv::Result<()>) -> String {
@@ -280,20 +282,75 @@ pub fn conditions(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> O
     }))
 }
 
-/// Settling-time histogram of every step: settled windows by class, `from` up to but not including `to`.
+/// Settling-time histogram of every step: settled windows by class, `from` up to but not including `to`. `far` is `yes` for
+/// the one bar of the few windows that settle far later than all others (see [`Settling::far`](crate::sweep::Settling)).
 pub fn settling(scenario: &Scenario, report: &SweepReport) -> String {
     let unit = scenario.unit;
     write(|to| {
-        to.write_record(["step", &format!("from [{unit}]"), &format!("to [{unit}]"), "count"])?;
+        to.write_record(["step", &format!("from [{unit}]"), &format!("to [{unit}]"), "count", "far"])?;
         for window in &report.windows {
-            for (from, below, count) in window.settling.iter().flat_map(|it| &it.bars) {
+            let Some(settling) = &window.settling else { continue };
+            for (number, (from, below, count)) in settling.bars.iter().enumerate() {
                 to.write_record([
                     name(words::step(scenario, Some(window.moment))),
                     from.decimal(unit).to_string(),
                     below.decimal(unit).to_string(),
                     count.to_string(),
+                    yes_no(settling.far && number + 1 == settling.bars.len()),
                 ])?;
             }
+        }
+        Ok(())
+    })
+}
+
+/// The figures of every step's settling time, one row a step: what the lines of the chart stand at, and the ends.
+///
+/// Columns: step, settled (windows), least, median, p99, worst, each with what a window that was cut could make of it
+/// (`..._at_least`: `yes` if it could be longer), limit (of the rules), proved_bound (over all delays in the ranges; all
+/// settle earlier where `proved_below` is `yes`, and later only by exactly equal times where `but_for_ties` is). What is not
+/// known, or not asked, is empty.
+pub fn settling_figures(scenario: &Scenario, report: &SweepReport, proof: Option<&Proof>) -> String {
+    let unit = scenario.unit;
+    let time = |it: Option<Span>| it.map_or_else(String::new, |it| it.decimal(unit).to_string());
+    write(|to| {
+        let timed = |name: &str| format!("{name} [{unit}]");
+        to.write_record([
+            "step",
+            "settled",
+            &timed("least"),
+            &timed("median"),
+            "median_at_least",
+            &timed("p99"),
+            "p99_at_least",
+            &timed("worst"),
+            "worst_at_least",
+            &timed("limit"),
+            &timed("proved_bound"),
+            "proved_below",
+            "but_for_ties",
+        ])?;
+        for window in &report.windows {
+            let mut row = vec![name(words::step(scenario, Some(window.moment))), window.settled.to_string()];
+            row.extend(match &window.settling {
+                None => vec![String::new(); 7],
+                Some(it) => vec![
+                    time(it.min),
+                    time(Some(it.median)),
+                    yes_no(it.median_at_least),
+                    time(Some(it.p99)),
+                    yes_no(it.p99_at_least),
+                    time(Some(it.max)),
+                    yes_no(it.max_at_least),
+                ],
+            });
+            row.push(time(charts::limit(scenario, window.moment)));
+            let proved = proof.and_then(|it| it.windows.iter().find(|it| it.moment == window.moment));
+            row.extend(match proved.and_then(|it| it.settling.map(|(_, most)| (most, it))) {
+                None => [String::new(), String::new(), String::new()],
+                Some((most, it)) => [time(Some(most)), yes_no(it.settling_below), yes_no(it.settling_but_for_ties)],
+            });
+            to.write_record(&row)?;
         }
         Ok(())
     })

@@ -56,6 +56,10 @@ pub(super) fn quantities(plant: &Plant, system: &System) -> Vec<Quantity> {
         Unknown::Period(clock) => Quantity::Period(plant.clocks[clock as usize].clock),
         Unknown::High(clock) => Quantity::High(plant.clocks[clock as usize].clock),
         Unknown::Jitter(clock, edge) => Quantity::Jitter(plant.clocks[clock as usize].clock, edge),
+        Unknown::Toggle { step, entry, number, last } => {
+            let (net, _) = plant.steps[step as usize].set[entry as usize];
+            Quantity::Toggle { step, net: plant.nets[net as usize], number, last }
+        }
         Unknown::Late(step, entry) => {
             let (net, _) = plant.steps[step as usize].set[entry as usize];
             Quantity::Late(step, plant.nets[net as usize])

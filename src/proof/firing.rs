@@ -62,8 +62,10 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         self.work.load(self.base.size, &self.base.bounds);
         if self.is_due(&firing, agents) && self.set_out(&firing) && self.excite(&firing) && self.is_cool(&firing) {
             self.cool(&firing);
+            self.forget_toggles(key, movers);
             let (number, fates) = self.next_key(&firing);
-            let moves = firing.opens() || movers.iter().any(|mover| matches!(mover, Mover::Late(_)));
+            let late = |mover: &Mover| matches!(mover, Mover::Late(_) | Mover::Toggle(..));
+            let moves = firing.opens() || movers.iter().any(late);
             let next = self.found.key(number);
             if self.plant.ends && moves && next.skew() == 0 && !outside::ended(self.plant, next) {
                 let last = self.at_end(number);
@@ -86,6 +88,10 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         if held > 0 && !agents.is_empty() && !self.work.bound(0, held, self.semantics.later()) {
             return false;
         }
+        if !self.toggles_are_due(firing.key, firing.movers) {
+            return false;
+        }
+        let info = &self.known.infos[firing.key as usize];
         if agents.is_empty()
             && let PlantPlace::Rest(wait) = plant.steps[steps].place
         {
@@ -241,7 +247,13 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         let key = self.found.key(firing.key);
         let reads = |signal: u32| plant.gates[gate as usize].reads.iter().any(|read| read.0 == signal);
         self.known.infos[firing.key as usize].agents.iter().any(|agent| {
-            let gone = if agent.opens() { firing.replaces(agent) } else { firing.has(agent.mover) };
+            let gone = match agent.mover {
+                _ if agent.opens() => firing.replaces(agent),
+                Mover::Toggle(entry, _) => {
+                    firing.has(Mover::Toggle(entry, false)) || firing.has(Mover::Toggle(entry, true))
+                }
+                mover => firing.has(mover),
+            };
             !gone
                 && self.work.may_reach(agent.row, agent.min)
                 && match agent.mover {
@@ -257,7 +269,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
                         let late = plant.steps[..steps].last().filter(|_| key.skew() != 0);
                         edges || all.iter().chain(late).any(|step| step.set.iter().any(|(net, _)| reads(*net)))
                     }
-                    Mover::Late(entry) => reads(plant.steps[steps - 1].set[entry as usize].0),
+                    Mover::Late(entry) | Mover::Toggle(entry, _) => reads(plant.net_set(steps, entry)),
                 }
         })
     }
@@ -306,6 +318,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             [first, ..] => plant.windows + first,
         };
         let edges: Vec<(usize, u32)> = outside::numbers(firing.edges).map(|c| (c, key.edges(c) + 1)).collect();
+        let pending = Key { words: &self.words, layout }.skew();
         let block = Block {
             plant,
             before: key.values(),
@@ -314,7 +327,8 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             steps: firing.stepping,
             opens: &self.opens,
             rested: info.core_rest,
-            late: firing.movers.iter().any(|mover| matches!(mover, Mover::Late(_))),
+            late: plant.moves_late(firing.steps, firing.movers),
+            moving: plant.is_moving(firing.steps + firing.stepping, pending),
             disabled: &self.disabled,
             zone: &self.work,
             row: info.watch_row,
@@ -361,6 +375,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
                 Slot::Cycle(clock) if firing.edges >> clock & 1 == 1 => Some(Slot::Edge(clock)),
                 Slot::Fired | Slot::Held => None,
                 Slot::Apart(wire) if firing.has(Mover::Arrival(wire)) => None,
+                Slot::Toggled(entry) if firing.has(Mover::Toggle(entry, false)) => None,
                 Slot::Cool(gate) if self.cooling.contains(&gate) => None,
                 Slot::Watch(clock) => match fates[clock as usize] {
                     Fate::Keep(place) => Some(Slot::Watch(place)),

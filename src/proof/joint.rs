@@ -12,7 +12,7 @@ use rustc_hash::{FxHashMap, FxHashSet};
 
 use super::key::{Agent, Info, Key, Mover, bit, excited, put};
 use super::outside;
-use super::plant::Plant;
+use super::plant::{Plant, PlantStep};
 
 /// Movers of one set, at most.
 const TOGETHER: u32 = 8;
@@ -62,11 +62,20 @@ impl Joint {
         };
         let steps = of(|agent| agent.opens());
         let stepping_late = of(|agent| agent.steps > 0);
-        let skewed = steps != 0 && plant.steps[key.steps()..].iter().any(|step| step.skew > 0);
+        let skewed = steps != 0 && plant.steps[key.steps()..].iter().any(PlantStep::moves_on);
         // a step that disables nothing goes first; beside one that does all others may matter
         let stepping = enabled & steps & !if skewed { 0 } else { harmless(enabled & steps) };
         let alone = enabled & !steps & !harmless(enabled & !steps);
-        let late = of(|agent| matches!(agent.mover, Mover::Late(_)));
+        let late = of(|agent| matches!(agent.mover, Mover::Late(_) | Mover::Toggle(..)));
+        // one input toggles once, for the last time or not
+        let twice = |set: u64| {
+            let entry = |i: usize| match info.agents[i].mover {
+                Mover::Toggle(entry, _) => 1u64 << entry,
+                _ => 0,
+            };
+            let toggles = (0..info.agents.len()).filter(|i| set >> i & 1 == 1).map(entry).filter(|entry| *entry != 0);
+            toggles.clone().count() as u32 != toggles.fold(0, |all, entry| all | entry).count_ones()
+        };
         let mut complete = true;
         let first = |mask: u64| (0..info.agents.len()).filter(move |i| mask >> i & 1 == 1).map(|i| 1u64 << i);
         let mut open: Vec<u64> = first(alone).chain(first(stepping)).collect();
@@ -83,7 +92,7 @@ impl Joint {
             while next != 0 {
                 let grown = set | 1 << next.trailing_zeros();
                 next &= next - 1;
-                if grown & stepping_late != 0 && grown & late != 0 {
+                if grown & stepping_late != 0 && grown & late != 0 || twice(grown) {
                     continue;
                 }
                 if !seen.insert(grown) {
@@ -121,6 +130,7 @@ fn signals(plant: &Plant, key: Key<'_>, agent: &Agent) -> Vec<(u32, bool)> {
             .chain(edges)
             .collect()
         }
+        Mover::Toggle(entry, _) => flipped(plant.net_set(key.steps(), entry) as usize),
         Mover::Late(entry) => vec![plant.steps[key.steps() - 1].set[entry as usize]],
     }
 }
@@ -193,8 +203,8 @@ fn is_irreducible(plant: &Plant, key: Key<'_>, info: &Info, set: u64, victims: &
     };
     let step = (0..info.agents.len()).filter(|i| info.agents[*i].opens());
     let step = step.fold(0u64, |all, i| all | 1 << i) & set;
-    // with skew, a part of the inputs may change: all such sets are tried
-    let skewed = |agent: &Agent| plant.steps[key.steps()..][..agent.steps as usize].iter().any(|step| step.skew > 0);
+    // with skew or bounce, a part of the inputs may change: all such sets are tried
+    let skewed = |agent: &Agent| plant.steps[key.steps()..][..agent.steps as usize].iter().any(PlantStep::moves_on);
     if step != 0 && skewed(&info.agents[step.trailing_zeros() as usize]) {
         return true;
     }

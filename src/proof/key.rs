@@ -1,5 +1,6 @@
 //! The discrete part of an explored state, as words: values, step, what is on its way, what a watch remembers.
 
+use super::bounce;
 use super::outside;
 use super::passed;
 use super::plant::{Plant, PlantPlace, Ticks};
@@ -14,10 +15,12 @@ pub(super) struct Layout {
     step: usize,
     /// Word of the watch's state (low half) and flags.
     watch: usize,
-    /// Word of the inputs that the last step has still to change, a bit an entry of its set.
+    /// Word of the inputs that the last step has still to change, a bit an entry of its set; those that bounce, too.
     skew: usize,
     /// First word of the numbers of arrivals under way, a byte a wire.
     flights: usize,
+    /// First word of the inputs that bounce, a word an entry of the last step's set: toggles left at most (low half), flag.
+    bounce: usize,
     /// First word of the gates that cool, a bit a gate.
     cool: usize,
     /// First word of the clocks, where there are any: the window, then the number of edges of each that have come.
@@ -32,6 +35,8 @@ pub(super) const FLIGHTS: u8 = 16;
 const FIRED: u64 = 1 << 32;
 const CAME: u64 = 1 << 33;
 const HELD: u64 = 1 << 34;
+/// In the word of an input that bounces: the time since its last toggle is kept.
+const TOGGLED: u64 = 1 << 32;
 /// In the byte of a wire: the time since its last arrival is kept.
 const APART: u8 = 1 << 7;
 
@@ -39,7 +44,8 @@ impl Layout {
     pub fn of(plant: &Plant) -> Layout {
         let values = plant.signals().div_ceil(64).max(1);
         let flights = values + 3;
-        let cool = flights + plant.wires.len().div_ceil(8);
+        let bounce = flights + plant.wires.len().div_ceil(8);
+        let cool = bounce + plant.bouncing();
         let end = cool + plant.gates.len().div_ceil(64);
         let clocks = (plant.ends || !plant.clocks.is_empty()).then_some(end);
         Layout {
@@ -48,6 +54,7 @@ impl Layout {
             watch: values + 1,
             skew: values + 2,
             flights,
+            bounce,
             cool,
             clocks,
             len: end + clocks.map_or(0, |_| 1 + plant.clocks.len()),
@@ -128,6 +135,16 @@ impl<'a> Key<'a> {
         self.words[self.layout.skew]
     }
 
+    /// How many toggles an input that bounces (an entry of the last step's set) may still make.
+    pub fn left(&self, entry: usize) -> u32 {
+        self.words[self.layout.bounce + entry] as u32
+    }
+
+    /// Does it keep the time since the last toggle of an input?
+    pub fn toggled(&self, entry: usize) -> bool {
+        self.words[self.layout.bounce + entry] & TOGGLED != 0
+    }
+
     fn of_wire(&self, wire: usize) -> u8 {
         (self.words[self.layout.flights + wire / 8] >> (8 * (wire % 8))) as u8
     }
@@ -201,6 +218,11 @@ impl KeyMut<'_> {
         self.words[self.layout.skew] = mask;
     }
 
+    /// Sets how many toggles an input that bounces may still make, and whether the time since its last is kept.
+    pub fn set_toggles(&mut self, entry: usize, left: u32, toggled: bool) {
+        self.words[self.layout.bounce + entry] = u64::from(left) | if toggled { TOGGLED } else { 0 };
+    }
+
     /// Sets the number of changes under way on a wire, at most [`FLIGHTS`], and whether the time since its last arrival is
     /// kept.
     pub fn set_flights(&mut self, wire: usize, flights: u8, apart: bool) {
@@ -254,6 +276,8 @@ pub(super) enum Slot {
     Cool(u32),
     /// Time since the last arrival on a wire on which the next could be due at once.
     Apart(u32),
+    /// Time since the last toggle of an input that bounces (an entry of the last step's set), as long as it may be none.
+    Toggled(u32),
     /// A clock of the watch.
     Watch(u8),
 }
@@ -270,12 +294,15 @@ pub enum Mover {
     Overtaking(u32, u8),
     /// Beside a step: it comes in a batch of its own, at the instant of the batch that brought its pattern.
     Apart,
-    /// The next step comes; of the inputs that it sets, those of this mask (a bit an entry) change at once.
+    /// The next step comes; of the inputs that it sets, those of this mask (a bit an entry) change at once. If it bounces:
+    /// how its inputs begin, see [`Begins`](super::bounce::Begins).
     Step(u64),
     /// The next edge of a clock (by its number in the plant) comes.
     Edge(u32),
     /// An input that the last step sets (entry of its set) changes, later than the step.
     Late(u32),
+    /// An input that the last step sets (entry of its set) toggles; is that its last toggle?
+    Toggle(u32, bool),
 }
 
 /// One mover of a key with its clock and range.
@@ -428,10 +455,14 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
     info.gives_up = gives_up.map(|timeout| (since, timeout));
     if skewed {
         let last = &plant.steps[taken - 1];
-        info.limits.push((since, zone::at_most(last.skew)));
-        for entry in 0..last.set.len() as u32 {
-            if key.skew() >> entry & 1 == 1 {
-                info.agents.push(Agent { mover: Mover::Late(entry), row: since, min: 0, steps: 0, edges: 0 });
+        if let Some(bounce) = last.bounce {
+            bounce::toggles(plant, key, bounce, since, &mut info);
+        } else {
+            info.limits.push((since, zone::at_most(last.skew)));
+            for entry in 0..last.set.len() as u32 {
+                if key.skew() >> entry & 1 == 1 {
+                    info.agents.push(Agent { mover: Mover::Late(entry), row: since, min: 0, steps: 0, edges: 0 });
+                }
             }
         }
     }
@@ -451,9 +482,10 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
     if let Some((row, ticks)) = timed {
         // with inputs still to change it can come at the instant of the last of them only
         let touching = match place {
-            Some(PlantPlace::After(ticks)) => skewed && ticks.min <= plant.steps[taken - 1].skew,
+            Some(PlantPlace::After(ticks)) => skewed && ticks.min <= plant.steps[taken - 1].moves_for(),
             _ => skewed,
         };
+        let touching = touching && bounce::may_end(plant, key);
         if !skewed {
             info.limits.push((row, zone::at_most(ticks.max)));
         }
@@ -476,6 +508,7 @@ pub(super) fn info(plant: &Plant, key: Key<'_>, excited: Vec<u64>, watch_clocks:
         info.slots.extend((0..plant.gates.len()).filter(|gate| key.cools(*gate)).map(|gate| Slot::Cool(gate as u32)));
     }
     info.slots.extend((0..plant.wires.len()).filter(|wire| key.apart(*wire)).map(|wire| Slot::Apart(wire as u32)));
+    bounce::clocks(plant, key, &mut info);
     info.watch_row = info.slots.len() + 1;
     info.slots.extend((0..watch_clocks).map(Slot::Watch));
     info

@@ -1,6 +1,7 @@
 //! All delays in their ranges at once: bounded-delay verdicts by zones.
 
 mod arriving;
+mod bounce;
 mod claim;
 mod cycles;
 mod deciding;
@@ -35,6 +36,7 @@ mod windows;
 mod witness;
 pub mod zone;
 
+pub use bounce::{Begins, PlantBounce};
 pub use claim::{Call, Claim, Proof, Variation, WindowProof};
 pub use cycles::{Cycle, RestVerdict, comes_to_rest};
 pub use explore::{explore, explore_under};

@@ -232,8 +232,15 @@ impl Prover<'_> {
             let steps = self.steps_of(&world.plant, *question);
             let moment = self.asked.questions[*question as usize].moment.expect("it is asked of a moment");
             let stimulus = &self.scenario.stimulus;
-            let skewed = stimulus.step_of(&stimulus.moments[moment as usize]).and_then(|step| step.skew);
-            let coming = if skewed.is_some_and(|skew| !skew.is_exact()) { Coming::Apart } else { Coming::Together };
+            let moment = &stimulus.moments[moment as usize];
+            let step = stimulus.step_of(moment);
+            let skewed = step.and_then(|step| step.skew).is_some_and(|skew| !skew.is_exact());
+            let bounce = step.and_then(|step| step.bounce.as_ref());
+            let coming = match bounce.is_some_and(|bounce| bounce.pulses.1 > 0) {
+                true => Coming::Restless(stimulus.inputs_of(moment)),
+                false if skewed => Coming::Apart,
+                false => Coming::Together,
+            };
             let mut gave_up = false;
             let mut bad = |found: &Explored| -> Vec<(u32, Rest)> {
                 let mut all = Vec::new();

@@ -183,15 +183,19 @@ impl Plant {
     }
 
     /// The windows of a question about this one: from its step to the next that surely begins another, since it changes an
-    /// input of the plant and cannot come at the instant of the one before it.
+    /// input of the plant and can neither come at the instant of the one before it nor at that of its last input change: an
+    /// input that changes there and is set back is seen to stay.
     pub(super) fn stretch(&self, start: u32) -> Stretch {
         let count = self.steps.len() as u32;
         let listed = start <= count;
         let mut inputs = self.initial.clone();
         let (mut end, mut idle) = (None, Vec::new());
         for (number, step) in self.steps.iter().enumerate() {
-            let changes =
-                step.set.iter().any(|(net, value)| self.core[*net as usize] && inputs[*net as usize] != *value);
+            // a contact that surely bounces moves, whatever it leads to
+            let bounces = step.bounce.is_some_and(|bounce| bounce.pairs.0 > 0);
+            let meets = |net: u32| self.may_meet(number) && self.steps[number - 1].set.iter().any(|set| set.0 == net);
+            let moves = |net: u32, value: bool| bounces || inputs[net as usize] != value && !meets(net);
+            let changes = step.set.iter().any(|(net, value)| self.core[*net as usize] && moves(*net, *value));
             step.set.iter().for_each(|(net, value)| inputs[*net as usize] = *value);
             let window = number as u32 + 1;
             if listed && window > start && changes && !self.may_coincide(number) {

@@ -213,7 +213,11 @@ impl Prover<'_> {
                 demands.push(decides);
             }
             // that something comes only after a step before which it came is no cure
-            let late = |(unknown, factor): &(usize, i128)| *factor < 0 && !trail.quantities[*unknown].is_delay();
+            let late = |(unknown, factor): &(usize, i128)| {
+                // a delay beyond a bounce is one
+                let quantity = trail.quantities[*unknown];
+                *factor < 0 && !quantity.is_delay() && !matches!(quantity, Quantity::Toggle { .. })
+            };
             for demand in demands.iter().filter(|demand| !demand.terms.is_empty() && !demand.terms.iter().any(late)) {
                 let need = i128::from(!demand.strict) - demand.least(&trail.quantities, self.scenario);
                 let choice = Choice { factors: factors(trail, &demand.terms, places), need };
@@ -235,6 +239,7 @@ fn factors(trail: &Trail, terms: &[(usize, i128)], places: &[Padded]) -> Vec<(us
             Quantity::Wire(wire, _) => Padded::Wire(wire),
             Quantity::Place(_)
             | Quantity::Late(..)
+            | Quantity::Toggle { .. }
             | Quantity::First(_)
             | Quantity::Period(_)
             | Quantity::High(_)

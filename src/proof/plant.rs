@@ -4,6 +4,7 @@
 
 use rustc_hash::FxHashMap;
 
+use super::bounce::{BOUNCING, PlantBounce};
 use super::outside::PlantClock;
 use crate::circuit::{Compiled, GateId, NetId, NetSet, WireId};
 use crate::delay::{DelayRange, Filter};
@@ -25,9 +26,15 @@ pub enum NotCovered {
     /// More clocks in one cone than an exploration tells apart.
     #[error("more than 4 clocks have to do with it, and the proof tells no more apart")]
     Clocks,
-    /// A step that bounces.
-    #[error("the proof does not know contact bounce: step \"{0}\"")]
-    Bounce(String),
+    /// A step that bounces and has skew.
+    #[error("step \"{0}\" bounces and has skew, and the proof does not know both in one")]
+    SkewedBounce(String),
+    /// More inputs of one step that bounce than an exploration tells apart.
+    #[error("step \"{0}\" lets more than 4 inputs bounce that have to do with it")]
+    WideBounce(String),
+    /// A step that bounces beside a clock.
+    #[error("step \"{0}\" bounces beside a clock, and the proof does not know both in one")]
+    ClockedBounce(String),
     /// Gates that begin at X.
     #[error("the proof does not begin with unknown values")]
     UnknownStart,
@@ -105,6 +112,8 @@ pub struct PlantStep {
     pub pattern: Vec<(u32, bool)>,
     /// How much later than the first the last of its inputs may change.
     pub skew: i64,
+    /// How its inputs bounce, if they do. Then it has no skew.
+    pub bounce: Option<PlantBounce>,
     /// With skew: does it set other inputs besides, so that none of these need be the first?
     pub others: bool,
 }
@@ -161,7 +170,7 @@ impl Plant {
             if let Place::When { pattern, .. } = &step.place {
                 of.extend(pattern.iter().map(|entry| entry.0));
                 // the pattern is looked for once the inputs of the step before have changed
-                let before = s.checked_sub(1).map(|before| &stimulus.steps[before]).filter(|it| it.skew.is_some());
+                let before = s.checked_sub(1).map(|before| &stimulus.steps[before]).filter(|it| it.skew.is_some() || it.bounce.is_some());
                 of.extend(before.into_iter().flat_map(|step| &step.set).map(|entry| entry.0));
             }
         }
@@ -187,8 +196,18 @@ impl Plant {
             .collect();
         wires_of.iter().for_each(|wire| delays.wire[wire.index()].into_iter().for_each(&mut add));
         for step in &stimulus.steps {
-            if step.bounce.is_some() {
-                return Err(NotCovered::Bounce(step.label.clone()));
+            if let Some(bounce) = step.bounce.as_ref().filter(|bounce| bounce.pulses.1 > 0) {
+                if step.skew.is_some_and(|skew| !skew.is_exact()) {
+                    return Err(NotCovered::SkewedBounce(step.label.clone()));
+                }
+                let here = step.set.iter().filter(|(net, _)| cone.contains(*net)).count();
+                if here > BOUNCING {
+                    return Err(NotCovered::WideBounce(step.label.clone()));
+                }
+                if here > 0 && stimulus.clocks.iter().any(|clock| cone.contains(clock.net)) {
+                    return Err(NotCovered::ClockedBounce(step.label.clone()));
+                }
+                add(bounce.lasting);
             }
             match &step.place {
                 Place::At(range) | Place::After(range) => add(*range),
@@ -267,6 +286,10 @@ impl Plant {
             },
             set: step.set.iter().filter_map(|(net, value)| local.get(net).map(|net| (*net, *value))).collect(),
             skew: step.skew.map_or(0, |skew| ticks(skew.max - skew.min)),
+            bounce: step.bounce.as_ref().filter(|bounce| bounce.pulses.1 > 0).map(|bounce| PlantBounce {
+                lasting: range(bounce.lasting),
+                pairs: bounce.pulses,
+            }),
             others: step.set.iter().any(|(net, _)| !local.contains_key(net)),
         });
         let steps = steps.collect();
@@ -303,6 +326,8 @@ impl Plant {
         let mut numbers = Vec::new();
         for last in step..self.steps.len().min(step + 255) {
             let (may_join, may_wait) = match self.steps.get(last + 1).map(|next| next.place) {
+                // the bounce takes time
+                _ if self.steps[last].bounce.is_some() => (false, true),
                 Some(PlantPlace::After(ticks)) => (ticks.min == 0 && self.steps[last].skew == 0, ticks.max > 0),
                 Some(PlantPlace::At(ticks)) => match self.steps[last].place {
                     PlantPlace::At(before) => {
@@ -324,7 +349,11 @@ impl Plant {
 
     /// May a step come at the very instant of the one before it?
     pub fn may_coincide(&self, step: usize) -> bool {
-        let Some(before) = step.checked_sub(1).map(|before| self.steps[before].place) else { return false };
+        let Some(before) = step.checked_sub(1).map(|before| &self.steps[before]) else { return false };
+        if before.bounce.is_some() {
+            return false;
+        }
+        let before = before.place;
         match (self.steps[step].place, before) {
             // a batch of its own
             (PlantPlace::Rest(_) | PlantPlace::When { .. }, _) => false,

@@ -16,6 +16,17 @@ pub enum Quantity {
     Place(u32),
     /// How much later than the first of its step an input changes.
     Late(u32, NetId),
+    /// How much later than its step an input toggles that bounces.
+    Toggle {
+        /// The step.
+        step: u32,
+        /// The input.
+        net: NetId,
+        /// Which toggle, from 0.
+        number: u32,
+        /// Is it the last?
+        last: bool,
+    },
     /// First edge of a clock (by its number in the scenario), from the start.
     First(u32),
     /// Period of a clock.
@@ -43,6 +54,11 @@ impl Quantity {
             Quantity::Jitter(clock, _) => {
                 let jitter = scenario.stimulus.clocks[clock as usize].jitter;
                 DelayRange { min: Span::ZERO, typ: jitter, max: jitter + jitter }
+            }
+            Quantity::Toggle { step, last, .. } => {
+                let bounce = scenario.stimulus.steps[step as usize].bounce.as_ref();
+                let lasting = bounce.map_or_else(DelayRange::default, |bounce| bounce.lasting);
+                if last { lasting } else { DelayRange::between(Span::ZERO, lasting.max) }
             }
             Quantity::Late(step, _) => {
                 let skew = scenario.stimulus.steps[step as usize].skew.unwrap_or_default();

@@ -27,6 +27,10 @@ pub trait Semantics {
     fn later(&self) -> zone::Code {
         zone::BELOW_ZERO
     }
+    /// How many pairs of toggles an input can make that bounces, where its step says so many at most.
+    fn pairs(&self, most: u32) -> u32 {
+        most
+    }
     /// May a step come at the instant at which its pattern came, in a batch of its own?
     fn follows(&self) -> bool {
         true

@@ -3,6 +3,7 @@
 
 use std::collections::VecDeque;
 
+use super::bounce::Begins;
 use super::explored::Fired;
 use super::key::{Mover, bit, excited, put};
 use super::plant::{Plant, PlantPlace, Ticks};
@@ -19,6 +20,17 @@ pub enum Unknown {
     Place(u32),
     /// How much later than its step an input (an entry of its set) changes.
     Late(u32, u32),
+    /// How much later than its step an input toggles that bounces.
+    Toggle {
+        /// The step.
+        step: u32,
+        /// The input, an entry of its set.
+        entry: u32,
+        /// Which toggle, from 0; those at the instant of the step do not count.
+        number: u32,
+        /// Is it the last?
+        last: bool,
+    },
     /// First edge of a clock (by its number in the plant).
     First(u32),
     /// Period of a clock.
@@ -135,6 +147,18 @@ pub enum Points {
     GaveUp,
 }
 
+/// An input that bounces.
+struct Bouncing {
+    /// The entry of its step's set.
+    entry: u32,
+    /// Toggles so far.
+    number: u32,
+    /// When it last moved, or could have.
+    moved: Form,
+    /// Is it at its new value?
+    at_new: bool,
+}
+
 /// What of a trace is walked along.
 struct Walk<'a> {
     plant: &'a Plant,
@@ -149,6 +173,8 @@ struct Walk<'a> {
     excited: Vec<u32>,
     launched: Vec<u32>,
     step_time: Form,
+    /// The inputs of the last step that bounce.
+    bouncing: Vec<Bouncing>,
     /// When the pattern came that the next step waits for.
     came: Option<Form>,
     /// The last block, if its batch goes on since the pattern that shows after it has not come.
@@ -194,6 +220,7 @@ impl System {
             excited: vec![0; plant.gates.len()],
             launched: vec![0; plant.wires.len()],
             step_time: Form::default(),
+            bouncing: Vec::new(),
             came: plant.shows_pattern(0, start).then(Form::default),
             goes_on: None,
             edges: vec![0; plant.clocks.len()],
@@ -212,6 +239,7 @@ impl System {
         {
             walk.system.push(end.minus(&gives_up), Sense::AtMost);
         }
+        walk.bounce_on();
         // edges that the trace does not hold come later
         if let Some(end) = walk.system.times.last().cloned() {
             for clock in 0..plant.clocks.len() {
@@ -359,6 +387,7 @@ impl Walk<'_> {
                     }
                 }
             }
+            Mover::Toggle(entry, last) => self.toggle(entry, last, before),
             Mover::Late(entry) => {
                 let step = self.steps - 1;
                 let range = Ticks { min: 0, max: self.plant.steps[step].skew };
@@ -392,6 +421,48 @@ impl Walk<'_> {
         time
     }
 
+    /// The inputs of the last step begin to bounce, if they do.
+    fn begin_bounce(&mut self, movers: &[Mover], time: &Form) {
+        self.bouncing.clear();
+        let mask = movers.iter().rev().find_map(|mover| if let Mover::Step(mask) = mover { Some(*mask) } else { None });
+        let step = &self.plant.steps[self.steps - 1];
+        let (Some(mask), true) = (mask, step.bounce.is_some()) else { return };
+        let begins = Begins(mask);
+        for entry in (0..step.set.len()).filter(|entry| begins.goes_on(*entry)) {
+            let at_new = begins.at_once(entry);
+            self.bouncing.push(Bouncing { entry: entry as u32, number: 0, moved: time.clone(), at_new });
+        }
+    }
+
+    /// When an input of the last step toggles, which came then. Its toggles come one after the other.
+    fn toggle(&mut self, entry: u32, last: bool, step_time: &Form) -> Form {
+        let step = self.steps - 1;
+        let lasting = self.plant.steps[step].bounce.map_or_else(Ticks::default, |bounce| bounce.lasting);
+        let range = if last { lasting } else { Ticks { min: 0, max: lasting.max } };
+        let Some(at) = self.bouncing.iter().position(|it| it.entry == entry) else { return step_time.clone() };
+        let number = self.bouncing[at].number;
+        let time = step_time.plus(self.unknown(Unknown::Toggle { step: step as u32, entry, number, last }, 0, range));
+        let it = &mut self.bouncing[at];
+        self.system.push(it.moved.minus(&time), Sense::Below);
+        (it.number, it.moved, it.at_new) = (number + 1, time.clone(), !it.at_new);
+        if last {
+            self.bouncing.swap_remove(at);
+        }
+        time
+    }
+
+    /// Toggles that the trace does not hold come after all that it holds.
+    fn bounce_on(&mut self) {
+        let before = self.step_time.clone();
+        while let Some(Bouncing { entry, at_new, .. }) = self.bouncing.first() {
+            let (entry, last) = (*entry, !at_new);
+            let time = self.toggle(entry, last, &before);
+            for block in &self.system.times {
+                self.system.rows.push(Row { form: block.minus(&time), sense: Sense::Below });
+            }
+        }
+    }
+
     /// When the next step gives up waiting for its pattern, if it does.
     fn gives_up(&self) -> Option<Form> {
         match self.plant.steps.get(self.steps)?.place {
@@ -405,7 +476,7 @@ impl Walk<'_> {
         let plant = self.plant;
         if !block.came {
             let shows = plant.shows_pattern(self.steps, &block.values);
-            let late = block.movers.iter().any(|mover| matches!(mover, Mover::Late(_) | Mover::Step(_)));
+            let late = block.movers.iter().any(|mover| matches!(mover, Mover::Late(_) | Mover::Toggle(..) | Mover::Step(_)));
             self.goes_on = (shows && !late).then_some(number);
             return;
         }
@@ -494,7 +565,7 @@ impl Walk<'_> {
             }
             // what a step waits for is like a gate that reads its pattern
             let pattern = plant.steps.get(self.steps).map_or(&[][..], |step| &step.pattern);
-            let late = block.movers.iter().any(|mover| matches!(mover, Mover::Late(_)));
+            let late = block.movers.iter().any(|mover| matches!(mover, Mover::Late(_) | Mover::Toggle(..)));
             if late || pattern.iter().any(|entry| changed.contains(&(entry.0 as usize))) {
                 pattern.iter().for_each(|entry| see(entry.0 as usize));
             }
@@ -528,7 +599,7 @@ impl Walk<'_> {
                 }
                 Mover::Gate(gate) => self.since[gate as usize] = None,
                 Mover::Edge(clock) => self.edges[clock as usize] += 1,
-                Mover::Overtaking(..) | Mover::Apart | Mover::Step(_) | Mover::Late(_) => {}
+                Mover::Overtaking(..) | Mover::Apart | Mover::Step(_) | Mover::Late(_) | Mover::Toggle(..) => {}
             }
         }
         if step {
@@ -538,6 +609,7 @@ impl Walk<'_> {
             self.step_time = time.clone();
             self.steps = taken;
             self.came = None;
+            self.begin_bounce(&block.movers, &time);
         }
         if self.came.is_none() {
             self.look(number, block, &time);

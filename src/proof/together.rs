@@ -1,5 +1,6 @@
 //! What can fire at one instant: in which ways a step, late inputs, and changes that overtake others can be part of it.
 
+use super::bounce::Begins;
 use super::explore::Explorer;
 use super::key::{Agent, Key, KeyMut, Mover, bit, put};
 use super::outside;
@@ -12,7 +13,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
     /// for rest.
     pub fn try_fire(&mut self, node: u32, agents: &[Agent]) {
         let key = self.found.nodes[node as usize].key;
-        if let [Agent { mover: mover @ (Mover::Gate(_) | Mover::Late(_)), .. }] = agents {
+        if let [Agent { mover: mover @ (Mover::Gate(_) | Mover::Late(_) | Mover::Toggle(..)), .. }] = agents {
             self.fire(node, agents, &[*mover], 0);
             return;
         }
@@ -21,9 +22,11 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         let opening = agents.iter().find(|agent| agent.opens());
         let of_step = opening.filter(|agent| agent.steps > 0);
         if of_step.is_some() {
-            // inputs that are late come first
+            // inputs that are late come first; of those that bounce the last toggle
             let late = self.found.key(key).skew();
-            movers.extend((0..64).filter(|entry| late >> entry & 1 == 1).map(Mover::Late));
+            let bounces = taken > 0 && self.plant.steps[taken - 1].bounce.is_some();
+            let mover = |entry| if bounces { Mover::Toggle(entry, true) } else { Mover::Late(entry) };
+            movers.extend((0..64).filter(|entry| late >> entry & 1 == 1).map(mover));
         }
         if agents.first().is_some_and(|agent| agent.row == 0) {
             movers.push(Mover::Apart);
@@ -55,6 +58,9 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
     /// The sets of inputs (a bit an entry) that the last of these steps can change at its very instant.
     fn first_changes(&self, key: u32, taken: usize, steps: usize) -> Vec<u64> {
         let step = &self.plant.steps[taken + steps - 1];
+        if let Some(bounce) = step.bounce {
+            return step.beginnings(bounce);
+        }
         if step.skew == 0 {
             return vec![u64::MAX];
         }
@@ -123,9 +129,8 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
     /// The words of a key after some movers, but for what pends, into `words`.
     fn next_values(&mut self, key: u32, movers: &[Mover]) {
         let (plant, layout) = (self.plant, self.layout);
-        let key = self.found.key(key);
-        let mut taken = key.steps();
-        self.words.copy_from_slice(key.words);
+        let mut taken = self.found.key(key).steps();
+        self.words.copy_from_slice(self.found.key(key).words);
         let flip = |words: &mut [u64], signal: usize| {
             let value = !bit(words, signal);
             put(words, signal, value);
@@ -137,6 +142,11 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
                 Mover::Overtaking(..) | Mover::Apart => {}
                 Mover::Edge(clock) => flip(&mut self.words, plant.clocks[clock as usize].net as usize),
                 Mover::Step(mask) => {
+                    if let Some(bounce) = plant.steps[taken].bounce {
+                        self.begin_bounce(taken, bounce, Begins(mask));
+                        taken += 1;
+                        continue;
+                    }
                     let mut waits = 0;
                     for (entry, (net, value)) in plant.steps[taken].set.iter().enumerate() {
                         if mask == u64::MAX || mask >> entry & 1 == 1 {
@@ -148,6 +158,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
                     KeyMut { words: &mut self.words, layout }.set_skew(waits);
                     taken += 1;
                 }
+                Mover::Toggle(entry, last) => self.toggle(taken, entry, last),
                 Mover::Late(entry) => {
                     let (net, value) = plant.steps[taken - 1].set[entry as usize];
                     put(&mut self.words, net as usize, value);

@@ -33,8 +33,10 @@ pub struct Block<'a> {
     pub opens: &'a [u32],
     /// Did nothing pend in what is asked about before it?
     pub rested: bool,
-    /// Do inputs change in it, of a step that came before?
+    /// Do inputs that are asked about change in it, of a step that came before?
     pub late: bool,
+    /// Are there inputs that are asked about and that the last step has still to change after it?
+    pub moving: bool,
     /// Gates that were excited and no longer are, without having fired, with the rows of their clocks.
     pub disabled: &'a [(u32, usize)],
     /// The time since each clock began, as a zone at the instant of the block, before any clock begins anew.
@@ -58,8 +60,10 @@ impl Block<'_> {
         }
         let Some(step) = self.step else { return false };
         let steps = &self.plant.steps[step..step + self.steps];
+        // a contact that bounces moves, whatever it leads to
+        let bounces = steps.last().is_some_and(|step| step.bounce.is_some()) && self.moving;
         // the last one to set an input decides
-        steps.iter().enumerate().any(|(at, step)| {
+        bounces || steps.iter().enumerate().any(|(at, step)| {
             step.set.iter().any(|(net, value)| {
                 let again = steps[at + 1..].iter().any(|later| later.set.iter().any(|set| set.0 == *net));
                 self.plant.core[*net as usize] && !again && super::key::bit(self.before, *net as usize) != *value

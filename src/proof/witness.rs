@@ -1,6 +1,7 @@
 //! From a point of a system to a case that can be run.
 
 use super::Fired;
+use super::bounce::Begins;
 use super::key::Mover;
 use super::plant::Plant;
 use super::system::{Point, System, Unknown};
@@ -51,6 +52,15 @@ pub fn case(
         let least = step.skew.map_or(Span::ZERO, |range| range.min);
         skews.iter_mut().for_each(|skew| *skew = least);
     }
+    // inputs that bounce do so as seldom and as briefly as they can where the trace says nothing
+    instance.bounces = Instance::of(scenario, &Which::Min).bounces;
+    for (step, begins) in bouncing_steps(plant, trace) {
+        for (entry, toggles) in bounces_of(scenario, plant, step, &mut instance) {
+            // at its old value it has toggled at the instant of the step
+            let old = begins.goes_on(entry) && !begins.at_once(entry);
+            *toggles = if old { vec![Span::ZERO] } else { Vec::new() };
+        }
+    }
     for (unknown, value) in system.unknowns.iter().zip(&point.values) {
         let value = span(*value);
         match *unknown {
@@ -82,6 +92,13 @@ pub fn case(
                     *place = moved;
                 }
             }
+            Unknown::Toggle { step, entry, .. } => {
+                if let Some((_, toggles)) =
+                    bounces_of(scenario, plant, step as usize, &mut instance).find(|it| it.0 == entry as usize)
+                {
+                    toggles.push(value);
+                }
+            }
             Unknown::Late(step, entry) => {
                 let of = &scenario.stimulus.steps[step as usize];
                 let (net, _) = plant.steps[step as usize].set[entry as usize];
@@ -89,6 +106,22 @@ pub fn case(
                 if let (Some(at), Some(range)) = (of.set.iter().position(|it| it.0 == net), of.skew) {
                     instance.skews[step as usize][at] = range.min + value;
                 }
+            }
+        }
+    }
+    for (step, begins) in bouncing_steps(plant, trace) {
+        let least = plant.steps[step].bounce.map_or(0, |bounce| 2 * bounce.pairs.0 as usize);
+        for (entry, toggles) in bounces_of(scenario, plant, step, &mut instance) {
+            // pairs that nobody sees fall together
+            while begins.goes_on(entry) && toggles.len() < least {
+                toggles.push(Span::ZERO);
+            }
+            toggles.sort_unstable();
+            // rounded down, others may fall together with the last, which in a draw they never do
+            if let Some((last, others)) = toggles.split_last_mut()
+                && *last > Span::ZERO
+            {
+                others.iter_mut().for_each(|toggle| *toggle = (*toggle).min(*last - Span::TICK));
             }
         }
     }
@@ -111,6 +144,27 @@ pub fn case(
         }
     }
     Case { instance, exact }
+}
+
+/// The steps of a trace that bounce, and how their inputs begin.
+fn bouncing_steps(plant: &Plant, trace: &[Fired]) -> Vec<(usize, Begins)> {
+    let masks = trace.iter().flat_map(|block| {
+        block.movers.iter().filter_map(|mover| if let Mover::Step(mask) = mover { Some(Begins(*mask)) } else { None })
+    });
+    masks.enumerate().filter(|(step, _)| plant.steps[*step].bounce.is_some()).collect()
+}
+
+/// The toggles of the inputs of a step in a case, each with its entry in the plant's set.
+fn bounces_of<'a>(
+    scenario: &Scenario,
+    plant: &'a Plant,
+    step: usize,
+    instance: &'a mut Instance,
+) -> impl Iterator<Item = (usize, &'a mut Vec<Span>)> {
+    let nets: Vec<_> = scenario.stimulus.steps[step].set.iter().map(|(net, _)| *net).collect();
+    let entry =
+        move |at: usize| plant.steps[step].set.iter().position(|(net, _)| plant.nets[*net as usize] == nets[at]);
+    instance.bounces[step].iter_mut().enumerate().filter_map(move |(at, toggles)| Some((entry(at)?, toggles)))
 }
 
 impl Unknown {

@@ -2,6 +2,7 @@
 
 use std::collections::{BTreeMap, BTreeSet};
 
+use super::bars::bars;
 use super::lowest::Lowest;
 use super::ranges::Ranges;
 use super::report::{
@@ -21,8 +22,6 @@ use crate::time::Span;
 
 /// Confidence of every interval.
 const CONFIDENCE: f64 = 0.95;
-/// Bars of a settling histogram, at most.
-const BARS: u64 = 60;
 
 /// Draws the conclusions of a tally.
 pub fn conclude(scenario: &Scenario, asked: &Asked, tally: &Tally) -> SweepReport {
@@ -315,6 +314,7 @@ fn settling(settled: &Spread, cut: &Spread) -> Option<Settling> {
     // had every cut window gone on for ever, would another be of that rank?
     let at_least = |share: f64, figure: Span| settled.up_to(figure) < spread::rank(settled.len() + cut.len(), share);
     let exact = settled.is_exact() && cut.is_exact();
+    let (bars, far) = bars(settled);
     Some(Settling {
         min: settled.min(),
         median,
@@ -324,34 +324,9 @@ fn settling(settled: &Spread, cut: &Spread) -> Option<Settling> {
         max,
         max_at_least: !cut.is_empty(),
         resolution: if exact { 0.0 } else { spread::RESOLUTION },
-        bars: bars(settled),
+        bars,
+        far,
     })
-}
-
-/// A histogram of at most [`BARS`] bars of one round width.
-fn bars(spread: &Spread) -> Vec<(Span, Span, u64)> {
-    let (Some(min), Some(max)) = (spread.min(), spread.max()) else { return Vec::new() };
-    let needed = ((max - min).fs() / BARS).max(1);
-    let mut width = 1u64;
-    'found: loop {
-        for step in [1, 2, 5] {
-            if width * step >= needed {
-                width *= step;
-                break 'found;
-            }
-        }
-        width *= 10;
-    }
-    let first = min.fs() / width;
-    let mut counts = vec![0u64; (max.fs() / width - first + 1) as usize];
-    for (from, _, count) in spread.classes() {
-        counts[(from.max(min.fs()) / width - first) as usize] += count;
-    }
-    let bar = |(i, count)| {
-        let from = (first + i as u64) * width;
-        (Span::from_fs(from), Span::from_fs(from + width), count)
-    };
-    counts.into_iter().enumerate().map(bar).collect()
 }
 
 struct Judging<'a> {

@@ -1,5 +1,6 @@
 //! Many runs: drawing, running, tallying, statistics. Texts say "Monte Carlo, N draws".
 
+mod bars;
 mod cases;
 mod conclude;
 mod envelope;

@@ -194,6 +194,10 @@ pub struct Settling {
     pub resolution: f64,
     /// Histogram of settled windows for pictures: (from, up to but not including, count), in order, no empty ends.
     pub bars: Vec<(Span, Span, u64)>,
+    /// The last bar is not of the width of the others: it holds the few windows that settled far later than the rest. So it
+    /// is where the latest of 999 of 1000 windows (at least all but one) lies less than a fifth of the way from the earliest
+    /// to the latest.
+    pub far: bool,
 }
 
 /// How a question was answered over all samples.

@@ -60,6 +60,7 @@ pub fn settling(from: &str, step: &str, counts: &[u64]) -> Settling {
         max_at_least: false,
         resolution: 0.001,
         bars,
+        far: false,
     }
 }
 

@@ -56,6 +56,45 @@ pub struct GridStep {
     place: GridPlace,
     set: Vec<(usize, bool)>,
     skew: u64,
+    /// How each of its inputs may bounce; empty without bounce.
+    bounces: Vec<GridBounce>,
+}
+
+/// One way in which an input may bounce.
+#[derive(Clone, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
+struct GridBounce {
+    /// Does it take its new value at the instant of the step?
+    at_once: bool,
+    /// When it toggles after that.
+    toggles: Vec<u64>,
+}
+
+/// All ways to bounce, from numbers of pairs and spans: of 2k toggles the last comes at the end of the span, the others at
+/// any grid points before it. An even number of them at one point cannot be seen, an odd number is one.
+fn bounces(pairs: (u32, u32), lasting: (u64, u64)) -> Vec<GridBounce> {
+    let mut all = BTreeSet::new();
+    for pairs in pairs.0..=pairs.1 {
+        if pairs == 0 {
+            all.insert(GridBounce { at_once: true, toggles: Vec::new() });
+            continue;
+        }
+        for span in lasting.0..=lasting.1 {
+            let mut some: Vec<Vec<u64>> = vec![Vec::new()];
+            for _ in 1..2 * pairs {
+                let from = |it: &Vec<u64>| it.last().copied().unwrap_or(0);
+                some = some
+                    .iter()
+                    .flat_map(|it| (from(it)..span).map(move |at| it.iter().copied().chain([at]).collect()))
+                    .collect();
+            }
+            for offsets in some {
+                let count = |at: u64| offsets.iter().filter(|it| **it == at).count();
+                let toggles = (1..span).filter(|at| count(*at) % 2 == 1).chain([span]).collect();
+                all.insert(GridBounce { at_once: count(0) % 2 == 0, toggles });
+            }
+        }
+    }
+    all.into_iter().collect()
 }
 
 #[derive(Clone, Debug)]
@@ -158,6 +197,7 @@ impl Grid {
             },
             set: set.iter().map(|(name, bit)| (net(name), *bit)).collect(),
             skew: step.skew.map_or(0, |skew| skew.max.fs() * fine),
+            bounces: step.bounce.as_ref().map_or_else(Vec::new, |it| bounces(it.pulses, range(it.lasting))),
         });
         let clock = world.clocks.first().map(|(name, clock)| {
             let (period, high) = (range(clock.period), range(clock.high));
@@ -525,12 +565,12 @@ impl Runs<'_> {
                 state.late.push((input, left));
             }
         }
-        let mut ready = vec![(state, (0u32, 0u32), stepping)];
+        let mut ready = vec![(state, (0u32, 0u32, 0u32), stepping)];
         let mut taken = Vec::new();
         // which inputs the steps set, and to what in the end
-        while let Some((mut state, (set, to), stepping)) = ready.pop() {
+        while let Some((mut state, (set, to, bounced), stepping)) = ready.pop() {
             if !stepping {
-                taken.push((state, (before.values ^ to) & set));
+                taken.push((state, (before.values ^ to) & set | bounced));
                 continue;
             }
             let step = &grid.steps[state.next as usize];
@@ -540,6 +580,29 @@ impl Runs<'_> {
                 step.set.iter().copied().filter(|(net, value)| (state.values >> net & 1 == 1) != *value).collect();
             let set = step.set.iter().fold(set, |all, (net, _)| all | 1 << net);
             let to = step.set.iter().fold(to, |to, (net, value)| to & !(1 << net) | u32::from(*value) << net);
+            if !step.bounces.is_empty() {
+                let mut ways = vec![(state, bounced)];
+                for (net, value) in &step.set {
+                    ways = ways
+                        .iter()
+                        .flat_map(|(state, bounced)| {
+                            step.bounces.iter().map(move |way| {
+                                let mut state = state.clone();
+                                let now = *value == way.at_once;
+                                state.values = state.values & !(1 << net) | u32::from(now) << net;
+                                state.late.extend(way.toggles.iter().map(|at| (*net as u8, *at)));
+                                let moves = u32::from(!way.toggles.is_empty()) << net;
+                                (state, bounced | moves)
+                            })
+                        })
+                        .collect();
+                }
+                for (mut state, bounced) in ways {
+                    state.late.sort_unstable();
+                    ready.push((self.placed(&state), (set, to, bounced), false));
+                }
+                continue;
+            }
             // offsets of those that move; some entry of the set is the first
             let stays = moving.len() < step.set.len();
             let mut offsets = vec![Vec::new()];
@@ -568,13 +631,13 @@ impl Runs<'_> {
                 // the next one may come with it, or later
                 if let Some((lo, hi)) = self.window(&state) {
                     if state.wait >= lo {
-                        ready.push((state.clone(), (set, to), true));
+                        ready.push((state.clone(), (set, to, bounced), true));
                     }
                     if state.wait >= hi {
                         continue;
                     }
                 }
-                ready.push((state, (set, to), false));
+                ready.push((state, (set, to, bounced), false));
             }
         }
         for (mut state, mut becomes) in taken {

@@ -64,6 +64,10 @@ pub fn scenario(world: &World, start: &[bool]) -> String {
                 write!(text, "when = {pattern}\nwait = {}\n{timeout}", range(*wait))
             }
         };
+        if let Some(bounce) = &step.bounce {
+            let (least, most) = bounce.pulses;
+            let _ = writeln!(text, "bounce = {{ lasting = {}, pulses = [{least}, {most}] }}", range(bounce.lasting));
+        }
         if let Some(skew) = step.skew {
             let _ = writeln!(text, "skew = {}", range(skew));
         }

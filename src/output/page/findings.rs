@@ -2,13 +2,13 @@
 
 use maud::{Markup, html};
 
-use super::parts::{Cell, Table, command, cut};
+use super::parts::{Cell, Table, command, cut, figure};
 use super::{Told, about, anchor, parts, waveforms};
 use crate::instance::{Instance, Quantities, Quantity, Which};
 use crate::output::search::{CaseFile, case_files, rare_claim};
 use crate::output::text::{self, Tone, for_page};
 use crate::output::words::{self, clean, many, sentence};
-use crate::output::{causes, deciding, races};
+use crate::output::{causes, deciding, races, sensitivity, shares};
 use crate::review::{Needs, Why};
 use crate::scenario::Vary;
 use crate::sweep::Finding;
@@ -40,9 +40,41 @@ pub(super) fn section(told: &Told<'_>) -> Markup {
             p { "Worst first: what breaks a rule comes before what breaks none. Numbers are those of " code { "findings.csv" }
                 "; shares are of the draws that were judged." }
         }
+        (how_often(told))
         @for (number, finding) in findings.iter().enumerate().take(full) { (article(told, &files, number, finding)) }
         (rest(told, &files, full))
+        (what_decides(told))
         (parts::blocks("conditions", "Conditions", &for_page::by_condition(told.page, told.scenario, told.review)))
+    }
+}
+
+/// All shares side by side, if there is any.
+fn how_often(told: &Told<'_>) -> Markup {
+    let (scenario, asked, sweep) = (told.scenario, &told.review.asked, &told.review.sweep);
+    if !shares::has_rows(sweep) {
+        return html! {};
+    }
+    figure(
+        "shares",
+        &shares::svg(scenario, asked, sweep),
+        &html! {
+            "How often each finding comes, and how sure that is. Files: " code { "shares.svg" } ", " code { "shares.csv" } "."
+        },
+    )
+}
+
+/// The delays that decide, finding by finding, if any finding was looked into.
+fn what_decides(told: &Told<'_>) -> Markup {
+    let Some(picture) = sensitivity::svg(told.scenario, told.review) else { return html! {} };
+    html! {
+        h3 { "Which delays decide" }
+        p.leads { "Over all draws that were compared, not in one case: of all pairs of a failing and a passing draw, the share in \
+            which the failing one has the greater value less the share in which it has the lesser. What must be neither long \
+            nor short but in the middle does not show." }
+        (figure("sensitivity", &picture, &html! {
+            "Which delays decide. Files: " code { "sensitivity.svg" } ", " code { "sensitivity.csv" } "; with the case of each \
+            finding: " code { "causes.csv" } "."
+        }))
     }
 }
 

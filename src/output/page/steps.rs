@@ -13,8 +13,9 @@ pub(super) fn section(told: &Told<'_>) -> Markup {
     html! {
         (blocks("outcomes", "Outcomes of each step, with settling times", &for_page::outcomes(scenario, told.review)))
         @if settled {
-            (figure("settling", &charts::settling(scenario, sweep), &html! {
-                "Settling times. Files: " code { "settling.svg" } ", " code { "settling.csv" } "."
+            (figure("settling", &charts::settling_with(scenario, sweep, told.review.proof.as_ref()), &html! {
+                "Settling times. Files: " code { "settling.svg" } ", " code { "settling.csv" } ", "
+                code { "settling-figures.csv" } "."
             }))
         }
         @if sweep.stopped.is_some() {

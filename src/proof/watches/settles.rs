@@ -97,7 +97,8 @@ impl Watch for Late {
         if block.late && state & 3 != 0 {
             return ((state & !3) | Self::ASKED, [Fate::Begin; 2]);
         }
-        if block.change(self.net).is_some() {
+        // the time counts from the last input change
+        if block.change(self.net).is_some() && !block.moving {
             let late = match self.bound(state) {
                 Some(bound) if state & Self::ASKED != 0 => block.zone.may_pass(block.row, bound),
                 _ => state & Self::PAST != 0,
