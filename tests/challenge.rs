@@ -211,7 +211,7 @@ fn a_contradiction_is_told() {
             let claim = proof.claims.iter_mut().find(|it| Some(it.question) == broken.subject.question).unwrap();
             claim.call = Claimed::Proved;
         },
-        "is proved for every delay in the ranges, but",
+        "is proved for the delays in the ranges, but",
     );
     let window = |proof: &mut Proof| proof.windows.iter().position(|it| it.moment == moment).unwrap();
     both(

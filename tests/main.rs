@@ -30,6 +30,7 @@ mod limits;
 mod malformed;
 mod margins;
 mod margins_drawn;
+mod needs_variation;
 mod outcomes_agree;
 mod outside;
 mod paddings;

@@ -87,6 +87,18 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         rested: Option<Rest>,
         missed: Option<u32>,
     ) {
+        let mut node = node;
+        if let Some(listener) = self.listener.take() {
+            if rested.is_some() || !self.hits.is_empty() {
+                if self.mode.merge == Merge::Branch {
+                    node = node.or_else(|| Some(self.push(number, parent, movers, false)));
+                }
+                if listener.arrived(&self.found, parent, number, node, (&self.hits, rested)) {
+                    self.end(Ended::Hit);
+                }
+            }
+            self.listener = Some(listener);
+        }
         let first = rested.is_some_and(|rest| !self.found.rests.contains_key(&rest))
             || missed.is_some()
             || self.hits.iter().any(|hit| !self.found.hits.contains_key(hit));
@@ -198,6 +210,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             Merge::Equality => zones.iter().find(|zone| self.kept.is(zone)).copied(),
             Merge::Inclusion => zones.iter().find(|zone| self.kept.needless(zone)).copied(),
             Merge::Hull => zones.first().copied(),
+            Merge::Branch => return self.branch(number, parent, movers),
         };
         if let Some(zone) = known {
             if self.mode.edges && parent != u32::MAX {
@@ -230,6 +243,31 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
         }
         self.open.push_back(node);
         self.found.zones += 1;
+        if self.found.zones > self.budget.zones {
+            self.end(Ended::Zones);
+        } else if self.found.bytes > self.budget.bytes {
+            self.end(Ended::Bytes);
+        }
+        Some(node)
+    }
+
+    /// A node for the zone that was taken, which is kept as a branch as far as the listener lets it.
+    fn branch(&mut self, number: u32, parent: u32, movers: &[Mover]) -> Option<u32> {
+        let node = self.push(number, parent, movers, false);
+        let kind = self.listener.as_mut().and_then(|listener| listener.branch(&self.found, node));
+        let Some(kind) = kind else { return Some(node) };
+        let zones = &mut self.known.zones[number as usize];
+        if zones.iter().any(|zone| self.kinds[&zone.node] == kind && self.kept.lies_in(zone)) {
+            return Some(node);
+        }
+        let (kept, _) = self.kept.keep(node);
+        let it = &mut self.found.nodes[node as usize];
+        (it.at, it.gone) = (kept.at, false);
+        zones.push(kept);
+        self.kinds.insert(node, kind);
+        self.open.push_back(node);
+        self.found.zones += 1;
+        self.found.bytes += (self.entry.bounds.len() * std::mem::size_of::<C>() + std::mem::size_of::<Kept>()) as u64;
         if self.found.zones > self.budget.zones {
             self.end(Ended::Zones);
         } else if self.found.bytes > self.budget.bytes {

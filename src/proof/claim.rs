@@ -47,7 +47,8 @@ impl Call {
 pub enum Variation {
     /// Constant delays do.
     Constant,
-    /// Only delays that change from one firing to the next do.
+    /// Only delays that change from one firing to the next do: all traces were looked through, none has constant delays. The
+    /// claim is undecided then, since it holds for constant delays and may not for others.
     CycleToCycle,
     /// Constant delays that do were not found, nor was shown that there are none.
     Unknown,
@@ -73,7 +74,7 @@ pub struct Claim {
     pub call: Call,
     /// Refuted only by exactly equal times.
     pub but_for_ties: bool,
-    /// For a refuted claim, what it takes.
+    /// For a claim that something was found against, what it takes to break it.
     pub variation: Option<Variation>,
     /// For a refuted claim a case that shows it when it is run.
     pub witness: Option<Box<Instance>>,

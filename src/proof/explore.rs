@@ -9,7 +9,7 @@ use std::time::Instant;
 
 use rustc_hash::FxHashMap;
 
-use super::explored::{Budget, Ended, Explored, Mode, Node, START};
+use super::explored::{Budget, Ended, Explored, Listener, Merge, Mode, Node, START};
 use super::key::{self, Agent, KeyMut, Layout, Mover, put};
 use super::known::Known;
 use super::outside;
@@ -37,30 +37,45 @@ pub fn explore_under<W: Watch, S: Semantics>(
     budget: &Budget,
 ) -> Explored {
     // bounds are kept in 32 bits as long as all of them fit
-    let narrow = explore_in::<W, S, i32>(semantics, plant, starts, watch, mode, budget);
+    let narrow = explore_in::<W, S, i32>(semantics, plant, starts, watch, mode, budget, None);
     match narrow {
         Some(found) => found,
-        None => explore_in::<W, S, i64>(semantics, plant, starts, watch, mode, budget)
+        None => explore_in::<W, S, i64>(semantics, plant, starts, watch, mode, budget, None)
             .expect("every bound fits where it is worked on"),
     }
 }
 
-/// Explores with bounds kept as wide as `C`. `None`: one of them did not fit.
-fn explore_in<W: Watch, S: Semantics, C: Cell>(
-    semantics: &S,
+/// Explores a plant while a listener hears of everything that is come by.
+pub(super) fn explore_heard<W: Watch>(
     plant: &Plant,
     starts: &[Vec<bool>],
     watch: &W,
     mode: Mode,
     budget: &Budget,
+    listener: &mut dyn Listener,
+) -> Explored {
+    explore_in::<W, Exact, i64>(&Exact, plant, starts, watch, mode, budget, Some(listener))
+        .expect("every bound fits where it is worked on")
+}
+
+/// Explores with bounds kept as wide as `C`. `None`: one of them did not fit.
+fn explore_in<'a, W: Watch, S: Semantics, C: Cell>(
+    semantics: &'a S,
+    plant: &'a Plant,
+    starts: &[Vec<bool>],
+    watch: &'a W,
+    mode: Mode,
+    budget: &'a Budget,
+    listener: Option<&'a mut (dyn Listener + 'a)>,
 ) -> Option<Explored> {
     let mut explorer = Explorer::<W, S, C>::new(semantics, plant, watch, mode, budget);
+    explorer.listener = listener;
     for start in starts {
         explorer.begin(start);
     }
     while explorer.found.ended == Ended::Complete
         && explorer.fits
-        && let Some(node) = explorer.open.pop_front()
+        && let Some(node) = explorer.next()
     {
         explorer.expand(node);
     }
@@ -81,6 +96,10 @@ pub(super) struct Explorer<'a, W, S, C> {
     pub open: VecDeque<u32>,
     pub state_numbers: FxHashMap<Box<[u64]>, u32>,
     pub found: Explored,
+    /// Hears of what is come by.
+    pub listener: Option<&'a mut dyn Listener>,
+    /// The kind of each branch, by node.
+    pub kinds: FxHashMap<u32, u32>,
     /// Did all bounds fit so far?
     pub fits: bool,
     expanded: u64,
@@ -119,6 +138,8 @@ impl<'a, W: Watch, S: Semantics, C: Cell> Explorer<'a, W, S, C> {
             open: VecDeque::new(),
             state_numbers: FxHashMap::default(),
             found: Explored::nothing(plant),
+            listener: None,
+            kinds: FxHashMap::default(),
             fits: true,
             expanded: 0,
             joins: FxHashMap::default(),
@@ -135,6 +156,11 @@ impl<'a, W: Watch, S: Semantics, C: Cell> Explorer<'a, W, S, C> {
             opens: Vec::new(),
             hits: Vec::new(),
         }
+    }
+
+    /// The next node to expand.
+    fn next(&mut self) -> Option<u32> {
+        if self.mode.merge == Merge::Branch { self.open.pop_back() } else { self.open.pop_front() }
     }
 
     /// Begins in a state, every clock at 0.

@@ -24,6 +24,8 @@ pub enum Merge {
     Hull,
     /// Dropped only if it is known: exact, and every cycle is a real one.
     Equality,
+    /// Kept as a branch of its own, last come first looked at, as far as the listener lets it: a tree of traces.
+    Branch,
 }
 
 /// How an exploration goes.
@@ -142,6 +144,17 @@ pub struct Explored {
     pub(super) layout: Layout,
 }
 
+/// Someone who hears of what an exploration comes by.
+pub(super) trait Listener {
+    /// A branch would grow from this node ([`Merge::Branch`] only). `None`: nothing is to come of it. Else the number of its
+    /// kind: it is dropped if its zone lies in that of another branch of the same key and kind.
+    fn branch(&mut self, found: &Explored, node: u32) -> Option<u32>;
+
+    /// A key was arrived at that lasts, with these hits and this state at rest. `node` is its node, if it has one. True: the
+    /// exploration ends.
+    fn arrived(&mut self, found: &Explored, parent: u32, key: u32, node: Option<u32>, said: (&[u32], Option<Rest>)) -> bool;
+}
+
 impl Explored {
     /// Of a plant that was not explored yet.
     pub(super) fn nothing(plant: &Plant) -> Explored {
@@ -181,6 +194,11 @@ impl Explored {
         }
         blocks.reverse();
         blocks
+    }
+
+    /// The key of a node, but for the state in which its window began.
+    pub(super) fn place(&self, node: u32) -> Box<[u64]> {
+        self.key(self.nodes[node as usize].key).without_origin()
     }
 
     /// How many nodes there are.

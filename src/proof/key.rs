@@ -101,6 +101,13 @@ impl<'a> Key<'a> {
         (self.words[self.layout.step] >> 32) as u32
     }
 
+    /// Its words, but for the number of that state, which depends on the exploration.
+    pub fn without_origin(&self) -> Box<[u64]> {
+        let mut words: Box<[u64]> = self.words.into();
+        words[self.layout.step] = self.steps() as u64;
+        words
+    }
+
     #[inline]
     pub fn watch(&self) -> u32 {
         self.words[self.layout.watch] as u32
@@ -276,7 +283,7 @@ pub(super) enum Slot {
 }
 
 /// What may happen next.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub enum Mover {
     /// A gate (by its number in the plant) takes its new value.
     Gate(u32),

@@ -29,6 +29,7 @@ mod semantics;
 pub mod simplex;
 mod system;
 mod together;
+mod varying;
 mod watch;
 mod watches;
 mod windows;

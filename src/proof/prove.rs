@@ -87,6 +87,7 @@ pub fn prove(scenario: &Scenario, program: &Program, asked: &Asked, spend: &Spen
     };
     let mut prover = Prover::new(scenario, program, asked, budget);
     prover.left = spend.total;
+    prover.branches = Some(spend.total.map_or(u64::MAX, |zones| zones / super::varying::ZONES_A_BRANCH));
     prover.proof.allowed = spend.total;
     prover.collects = spend.margins || spend.padding;
     prover.questions(&|_| true);
@@ -108,6 +109,8 @@ pub(super) struct Prover<'a> {
     pub(super) budget: Budget,
     /// Zones that all explorations together may still keep.
     left: Option<u64>,
+    /// Beginnings of traces that all searches for constant delays may still keep; `None`: there are no such searches.
+    pub(super) branches: Option<u64>,
     pub(super) proof: Proof,
     /// Is evidence kept?
     pub(super) collects: bool,
@@ -138,7 +141,7 @@ enum Looked {
 impl<'a> Prover<'a> {
     pub(super) fn new(scenario: &'a Scenario, program: &'a Program, asked: &'a Asked, budget: Budget) -> Prover<'a> {
         let (proof, collects, evidence) = (Proof::default(), false, Vec::new());
-        Prover { scenario, program, asked, budget, left: None, proof, collects, evidence }
+        Prover { scenario, program, asked, budget, left: None, branches: None, proof, collects, evidence }
     }
 
     pub(super) fn world(&mut self, nets: &[NetId], spans: &[Span]) -> Result<World, Unsaid> {
@@ -203,7 +206,7 @@ impl<'a> Prover<'a> {
     }
 
     /// What the next exploration may keep.
-    fn allowance(&self) -> Budget {
+    pub(super) fn allowance(&self) -> Budget {
         Budget { zones: self.left.map_or(self.budget.zones, |left| left.min(self.budget.zones)), ..self.budget.clone() }
     }
 
@@ -443,6 +446,13 @@ impl<'a> Prover<'a> {
             Looked::Hits { found, hits, ties, .. } => {
                 let ways: Vec<(u32, bool)> = hits.iter().map(|(hit, node)| (*node, ties[hit])).collect();
                 self.refute(world, &found, &ways, question, goal);
+                // what one net or bound of a rule needs is not all that the rule needs
+                let asked = &self.asked.questions[question as usize];
+                let timing = (asked.rule == RuleKey::Timing).then(|| &self.scenario.rules.timing[asked.index as usize]);
+                let several = timing.is_some_and(|timing| timing.min.is_some() && timing.max.is_some());
+                if asked.rule != RuleKey::Swallowed && !several {
+                    self.vary(world, watch, question, goal, &|_, hits, _| !hits.is_empty());
+                }
             }
         }
         Ok(())
@@ -482,7 +492,17 @@ impl<'a> Prover<'a> {
                                 self.claim(*question, Call::Proved);
                             }
                         },
-                        false => self.refute(world, &found, &of, *question, &goal(&world.plant, ask)),
+                        false => {
+                            let goal = goal(&world.plant, ask);
+                            self.refute(world, &found, &of, *question, &goal);
+                            // other parts of the circuit may come before rest, too
+                            if ask.rule != RuleKey::BeforeRest {
+                                let here = |_: &Explored, hits: &[u32], _: Option<&super::explored::Rest>| {
+                                    hits.iter().any(|hit| breaks(ask, steps, *hit))
+                                };
+                                self.vary(world, watch, *question, &goal, &here);
+                            }
+                        }
                     }
                 }
             }
@@ -571,12 +591,13 @@ impl<'a> Prover<'a> {
         let latest = if own { SINCE } else { START };
         let ranges: Vec<(u32, Stretch)> =
             questions.iter().map(|question| (*question, self.steps_of(&world.plant, *question))).collect();
+        let is_bad = |found: &Explored, steps: &Stretch, rest: &super::explored::Rest| {
+            steps.contains(&rest.steps)
+                && rest.origin <= latest
+                && !good(&world.plant, &found.states[rest.state as usize], rest.origin)
+        };
         let bad = |found: &Explored, steps: &Stretch| -> Vec<(u32, super::explored::Rest)> {
-            let all = found.rests.iter().filter(|(rest, _)| {
-                steps.contains(&rest.steps)
-                    && rest.origin <= latest
-                    && !good(&world.plant, &found.states[rest.state as usize], rest.origin)
-            });
+            let all = found.rests.iter().filter(|(rest, _)| is_bad(found, steps, rest));
             all.map(|(rest, node)| (*node, *rest)).collect()
         };
         let hull = Mode { merge: Merge::Hull, ..Mode::default() };
@@ -618,6 +639,10 @@ impl<'a> Prover<'a> {
                 let ways: Vec<(u32, bool)> = ways.map(|(node, _)| (*node, false)).collect();
                 self.refute(&world, &apart, &ways, *question, &Goal::Reached);
             }
+            let here = |found: &Explored, _: &[u32], rest: Option<&super::explored::Rest>| {
+                rest.is_some_and(|rest| is_bad(found, steps, rest))
+            };
+            self.vary(&world, &Nothing, *question, &Goal::Reached, &here);
         }
         Ok(())
     }

@@ -8,8 +8,8 @@ use crate::engine::{End, Program, Trace};
 use crate::findings::{Asked, Fact, Kind, Question, RuleKey, Subject};
 use crate::instance::Which;
 use crate::logic::State;
-use crate::proof::{Call, Claim, Proof, WindowProof};
-use crate::scenario::Scenario;
+use crate::proof::{Call, Claim, Proof, Variation, WindowProof};
+use crate::scenario::{Scenario, Vary};
 use crate::sweep::{Finding, SweepReport, Tie, WindowReport, Worst};
 use crate::time::Span;
 
@@ -26,7 +26,7 @@ pub fn challenge(scenario: &Scenario, asked: &Asked, proof: &Proof, sweep: &Swee
             settling_times(scenario, window, seen)?;
         }
     }
-    let proved = |question: u32| proof.claims.iter().any(|it| it.question == question && it.call == Call::Proved);
+    let proved = |question: u32| proof.claims.iter().any(|it| it.question == question && excludes(scenario, it));
     for finding in sweep.findings.iter().filter(|it| it.breaks_rule && it.tie != Some(Tie::Appears)) {
         let Some(question) = finding.subject.question.filter(|question| proved(*question)) else { continue };
         let by = finding.shown_by().map_or_else(|| "a draw".to_string(), |which| which.words());
@@ -52,11 +52,17 @@ pub fn challenge_run(scenario: &Scenario, asked: &Asked, proof: &Proof, run: &Ru
     windows_of(scenario, proof, &name, &run.trace)?;
     for fact in run.facts.iter().filter(|fact| fact.breaks_rule) {
         let Some(question) = fact.subject.question else { continue };
-        if proof.claims.iter().any(|it| it.question == question && it.call == Call::Proved) {
+        if proof.claims.iter().any(|it| it.question == question && excludes(scenario, it)) {
             return Err(against_proof(scenario, asked, question, fact.subject.kind, &name));
         }
     }
     Ok(())
+}
+
+/// Does a claim say that no run of this scenario breaks it: for every delay, or for constant ones where all draws have such?
+fn excludes(scenario: &Scenario, claim: &Claim) -> bool {
+    let constant = claim.variation == Some(Variation::CycleToCycle) && scenario.plan.vary == Vary::PerPart;
+    claim.call == Call::Proved || constant
 }
 
 fn settled_states(scenario: &Scenario, window: &WindowProof, seen: &WindowReport) -> Result<(), ReviewError> {
@@ -126,7 +132,7 @@ fn after(scenario: &Scenario, moment: u32, run: &str, what: &str) -> ReviewError
 
 fn against_proof(scenario: &Scenario, asked: &Asked, question: u32, kind: Kind, by: &str) -> ReviewError {
     let what = words(scenario, asked, question);
-    contradiction(format!("{what} is proved for every delay in the ranges, but {by} shows its {}", kind.word()))
+    contradiction(format!("{what} is proved for the delays in the ranges, but {by} shows its {}", kind.word()))
 }
 
 fn contradiction(what: String) -> ReviewError {
