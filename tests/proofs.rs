@@ -8,6 +8,7 @@ use stillgate::control::Control;
 use stillgate::engine::Program;
 use stillgate::findings::Asked;
 use stillgate::proof::{Call, Proof, Spend, prove};
+use stillgate::time::Span;
 
 fn proof(text: &str, zones: u64) -> (Asked, Proof) {
     let scenario = read(text);
@@ -318,4 +319,38 @@ min_pulse = {{ out = {{ high = 15 }} }}
         inside(clock.first, [10, 12]) && inside(clock.period, [50, 51]) && inside(clock.high, [20, 21]),
         "{clock:?}"
     );
+}
+
+/// Beside a clock a window of an edge counts from that edge, also while inputs of a step before it still change: at 105 ns the
+/// edge comes, up to 15 ns later the last input of the step, and y moves 2 to 3 ns after that.
+#[test]
+fn an_edge_counts_from_itself_while_inputs_are_late() {
+    let text = "outputs = [\"y\"]\n[inputs]\na = 0\nb = 1\nc = 0\n[gates]\ny = { xor = [\"b\", \"c\"], delay = [2, 3] }\n\
+        z = { and = [\"a\", \"b\"], delay = [2, 3] }\n[[clocks]]\nnet = \"c\"\nfirst = 105\nperiod = 1000\nhigh = 400\ncount = 1\n\
+        [[steps]]\nat = 100\nset = { a = 1, b = 0 }\nskew = [0, 20]\n";
+    let (_, proved) = proof(text, 20_000);
+    let ns = |n: u64| Span::from_fs(n * 1_000_000);
+    let bounds: Vec<_> = proved.windows.iter().map(|window| window.settling).collect();
+    assert_eq!(bounds, [Some((Span::ZERO, ns(3))), Some((Span::ZERO, ns(18))), Some((ns(2), ns(3)))]);
+    let rise = |text: &str| {
+        let (asked, proved) = proof(text, 20_000);
+        let of = |claim: &&stillgate::proof::Claim| {
+            let question = &asked.questions[claim.question as usize];
+            question.rule.word() == "settle_within" && question.moment == Some(1)
+        };
+        proved.claims.iter().find(of).unwrap().call
+    };
+    assert_eq!(rise(&format!("{text}[rules]\nsettle_within = 18\n")), Call::Proved);
+    assert_ne!(rise(&format!("{text}[rules]\nsettle_within = \"17.9 ns\"\n")), Call::Proved);
+}
+
+/// Parts of a circuit may count from different inputs of one step: the least time of the whole is not that of a part.
+#[test]
+fn skew_over_two_parts_has_no_least_time() {
+    let text = "outputs = [\"y\"]\n[inputs]\na = 0\nb = 0\nk = 0\n[gates]\ny = { buf = [\"a\"], delay = [2, 3] }\n\
+        z = { and = [\"k\", \"b\"], delay = [2, 3] }\n[[steps]]\nat = 100\nset = { a = 1, b = 1 }\nskew = [0, 20]\n";
+    let ns = |n: u64| Span::from_fs(n * 1_000_000);
+    assert_eq!(proof(text, 20_000).1.windows[0].settling, Some((Span::ZERO, ns(3))));
+    let without = text.replace("skew = [0, 20]\n", "");
+    assert_eq!(proof(&without, 20_000).1.windows[0].settling, Some((ns(2), ns(3))));
 }

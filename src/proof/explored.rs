@@ -152,7 +152,14 @@ pub(super) trait Listener {
 
     /// A key was arrived at that lasts, with these hits and this state at rest. `node` is its node, if it has one. True: the
     /// exploration ends.
-    fn arrived(&mut self, found: &Explored, parent: u32, key: u32, node: Option<u32>, said: (&[u32], Option<Rest>)) -> bool;
+    fn arrived(
+        &mut self,
+        found: &Explored,
+        parent: u32,
+        key: u32,
+        node: Option<u32>,
+        said: (&[u32], Option<Rest>),
+    ) -> bool;
 }
 
 impl Explored {

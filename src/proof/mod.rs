@@ -1,6 +1,7 @@
 //! All delays in their ranges at once: bounded-delay verdicts by zones.
 
 mod arriving;
+mod asking;
 mod bounce;
 mod claim;
 mod cycles;
@@ -14,6 +15,7 @@ mod grouped;
 mod joint;
 mod key;
 mod known;
+mod looking;
 mod margin;
 mod oscillations;
 mod outcomes;
@@ -25,6 +27,7 @@ mod plant;
 mod prove;
 mod race;
 mod ratio;
+mod refuting;
 mod semantics;
 pub mod simplex;
 mod system;

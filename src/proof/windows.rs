@@ -12,7 +12,7 @@ use super::watch::Nothing;
 use super::watches::Settles;
 use crate::circuit::{Circuit, NetId};
 use crate::logic::{Bits, State};
-use crate::scenario::Scenario;
+use crate::scenario::{Scenario, Step};
 use crate::time::Span;
 
 /// States listed of one window, at most.
@@ -45,6 +45,15 @@ impl Prover<'_> {
         for (taken, window) in windows.into_iter().enumerate().skip(first) {
             let moment = if power_up { taken } else { taken - 1 } as u32;
             let mut window = window.done(self.scenario, taken, moment);
+            // the time counts from the last input change: that of a part may be another than that of the circuit
+            let step = self.scenario.stimulus.moments.get(moment as usize);
+            let step = step.and_then(|moment| self.scenario.stimulus.step_of(moment));
+            let moves_on = step.filter(|step| step.skew.is_some() || step.bounce.is_some());
+            let apart =
+                |step: &Step| parts.len() > 1 || step.set.iter().any(|(net, _)| circuit.readers(*net).is_empty());
+            if let (Some(settling), true) = (&mut window.settling, moves_on.is_some_and(apart)) {
+                settling.0 = Span::ZERO;
+            }
             // steps of one instant share a window, named by the first: which, depends on the run
             if !clocked && shared(taken) {
                 (window.states, window.settling) = (None, None);

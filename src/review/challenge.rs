@@ -84,10 +84,7 @@ fn settling_times(scenario: &Scenario, window: &WindowProof, seen: &WindowReport
     if seen.cut == 0 && beyond(window, most, settling.max) {
         return Err(too_late(scenario, window.moment, "the sweep", settling.max, most));
     }
-    // with skew and bounce the parts of a circuit count from different moments
-    let moment = &scenario.stimulus.moments[window.moment as usize];
-    let skewed = scenario.stimulus.step_of(moment).is_some_and(|step| step.skew.is_some() || step.bounce.is_some());
-    match settling.min.filter(|min| !skewed && !window.settling_but_for_ties && *min < least) {
+    match settling.min.filter(|min| !window.settling_but_for_ties && *min < least) {
         Some(min) => {
             let what = format!("settles in {}, less than the {} that the proof allows", min.rounded(), least.rounded());
             Err(after(scenario, window.moment, "the sweep", &what))

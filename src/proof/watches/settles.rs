@@ -17,9 +17,16 @@ pub struct Settles {
     pub figures: RefCell<BTreeMap<u32, [(i64, bool); 2]>>,
 }
 
+impl Settles {
+    /// A window is open, and its time runs.
+    const RUNS: u32 = 1;
+    /// Only edges of clocks opened it: it counts from them, whatever inputs a step before them still changes.
+    const EDGE: u32 = 2;
+}
+
 impl Watch for Settles {
     fn clocks(&self, state: u32) -> u8 {
-        state as u8
+        u8::from(state & Self::RUNS != 0)
     }
 
     fn start(&self, plant: &Plant, _values: &[u64]) -> u32 {
@@ -28,14 +35,15 @@ impl Watch for Settles {
 
     fn block(&self, state: u32, block: &Block<'_>, _hit: &mut dyn FnMut(u32)) -> (u32, [Fate; 2]) {
         match block.opens.is_empty() {
-            false => (1, [Fate::Begin; 2]),
-            true if block.late => (state, [Fate::Begin; 2]),
+            false if block.step.is_none() => (Self::RUNS | Self::EDGE, [Fate::Begin; 2]),
+            false => (Self::RUNS, [Fate::Begin; 2]),
+            true if block.late && state & Self::EDGE == 0 => (state, [Fate::Begin; 2]),
             true => (state, SAME),
         }
     }
 
     fn arrive(&self, state: u32, arrival: &Arrival<'_>, hit: &mut dyn FnMut(u32)) {
-        if arrival.rest && state == 1 {
+        if arrival.rest && state & Self::RUNS != 0 {
             let (least, most) = (arrival.zone.at(0, arrival.row), arrival.zone.at(arrival.row, 0));
             let (least, most) = (limit(least), limit(most));
             let mut figures = self.figures.borrow_mut();
@@ -64,13 +72,19 @@ impl Late {
     const ASKED: u32 = 1;
     /// Beyond the bound for sure.
     const PAST: u32 = 2;
+    /// Only edges of clocks opened the window: it counts from them.
+    const EDGE: u32 = 4;
 
-    fn bound(&self, state: u32) -> Option<i64> {
-        self.bounds.get((state >> 2) as usize).copied().flatten()
+    fn window(state: u32) -> u32 {
+        state >> 3
     }
 
-    fn begin(&self, steps: u32) -> u32 {
-        let state = steps << 2;
+    fn bound(&self, state: u32) -> Option<i64> {
+        self.bounds.get(Self::window(state) as usize).copied().flatten()
+    }
+
+    fn begin(&self, window: u32) -> u32 {
+        let state = window << 3;
         if self.bound(state).is_some() { state | Self::ASKED } else { state }
     }
 }
@@ -92,19 +106,21 @@ impl Watch for Late {
         if let (Some(first), true) = (block.opens.first(), block.touches()) {
             // of steps of one instant the first that is asked names the window
             let asked = block.opens.iter().find(|window| self.begin(**window) & Self::ASKED != 0);
-            return (self.begin(*asked.unwrap_or(first)), [Fate::Begin; 2]);
+            let edge = if block.step.is_none() { Self::EDGE } else { 0 };
+            return (self.begin(*asked.unwrap_or(first)) | edge, [Fate::Begin; 2]);
         }
-        if block.late && state & 3 != 0 {
-            return ((state & !3) | Self::ASKED, [Fate::Begin; 2]);
+        let own = state & Self::EDGE == 0;
+        if block.late && own && state & (Self::ASKED | Self::PAST) != 0 {
+            return ((state & !Self::PAST) | Self::ASKED, [Fate::Begin; 2]);
         }
         // the time counts from the last input change
-        if block.change(self.net).is_some() && !block.moving {
+        if block.change(self.net).is_some() && !(own && block.moving) {
             let late = match self.bound(state) {
                 Some(bound) if state & Self::ASKED != 0 => block.zone.may_pass(block.row, bound),
                 _ => state & Self::PAST != 0,
             };
             if late {
-                hit(state >> 2);
+                hit(Self::window(state));
             }
         }
         (state, SAME)
@@ -113,7 +129,7 @@ impl Watch for Late {
     fn elapsed(&self, state: u32, zone: &mut Matrix, row: usize, _hit: &mut dyn FnMut(u32)) -> (u32, bool) {
         match self.bound(state) {
             Some(bound) if state & Self::ASKED != 0 && zone.at(0, row) <= below(-bound) => {
-                ((state & !3) | Self::PAST, true)
+                ((state & !Self::ASKED) | Self::PAST, true)
             }
             _ => (state, true),
         }
