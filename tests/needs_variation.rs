@@ -17,6 +17,13 @@ use stillgate::time::Span;
 use crate::bounded::read;
 use crate::support::share;
 
+/// Steps: `a` and, so long after it, `b` go up; both come back, and the same once more with `p` up.
+fn two_pulses(gaps: [u64; 2]) -> String {
+    let up = |gap: u64| format!("[[steps]]\nset = {{ a = 1 }}\n[[steps]]\nset = {{ b = 1 }}\nafter = {gap}\n");
+    let down = ["a = 0", "b = 0", "p = 1"].map(|set| format!("[[steps]]\nset = {{ {set} }}\n")).concat();
+    up(gaps[0]) + &down + &up(gaps[1])
+}
+
 /// Two pulses of `a`: the first tells whether `g` comes before `b`, the second whether it comes after it. The latches
 /// remember both. `more` gates, what else `second` asks for, and what happens in between are added.
 fn pulses(least: u64, most: u64, gaps: [u64; 2], (starts, gates, asks, late): (&str, &str, &str, &str)) -> Scenario {
@@ -38,22 +45,7 @@ g = {{ buf = ["a"], rise = [{least}, {least}, {most}], fall = 2 }}
 first = {{ expr = "first | g & !b & !p", delay = 1 }}
 second = {{ expr = "second | b & !g & p {asks}", delay = 1 }}
 {gates}
-[[steps]]
-set = {{ a = 1 }}
-[[steps]]
-set = {{ b = 1 }}
-after = {}
-[[steps]]
-set = {{ a = 0 }}
-[[steps]]
-set = {{ b = 0 }}
-[[steps]]
-set = {{ p = 1 }}
-[[steps]]
-set = {{ a = 1 }}
-[[steps]]
-set = {{ b = 1 }}
-after = {}
+{steps}
 {late}
 [[steps]]
 label = "last"
@@ -61,7 +53,7 @@ set = {{ b = 0 }}
 [[rules.never_at_rest]]
 state = {{ first = 1, second = 1 }}
 "#,
-        gaps[0], gaps[1]
+        steps = two_pulses(gaps)
     ))
 }
 
@@ -180,7 +172,7 @@ fn random(rng: &mut ChaCha8Rng) -> Scenario {
     let from = ["a", "b", "g"].choose(rng).unwrap();
     // about when `g` comes
     let gap = |rng: &mut ChaCha8Rng| least + rng.random_range(0..=width);
-    let (one, two) = (gap(rng), gap(rng));
+    let steps = two_pulses([gap(rng), gap(rng)]);
     let (from_edge, to) = (["a rise", "g any", "b any"].choose(rng).unwrap(), ["h any", "g any"].choose(rng).unwrap());
     let min = rng.random_range(1..=12u64);
     read(&format!(
@@ -200,22 +192,7 @@ g = 0
 h = 0
 first = 0
 second = 0
-[[steps]]
-set = {{ a = 1 }}
-[[steps]]
-set = {{ b = 1 }}
-after = {one}
-[[steps]]
-set = {{ a = 0 }}
-[[steps]]
-set = {{ b = 0 }}
-[[steps]]
-set = {{ p = 1 }}
-[[steps]]
-set = {{ a = 1 }}
-[[steps]]
-set = {{ b = 1 }}
-after = {two}
+{steps}
 [[steps]]
 set = {{ b = 0 }}
 [[rules.never_at_rest]]

@@ -28,6 +28,43 @@ const SMALL: f64 = ink::SMALL * 1.24;
 pub(super) type Area<'a> = DrawingArea<SVGBackend<'a>, Shift>;
 pub(super) type Drawn = Result<(), DrawingAreaErrorKind<std::io::Error>>;
 
+/// The title of a picture.
+pub(super) fn head(root: &Area<'_>, texts: &mut Fitted, title: &str) -> Drawn {
+    let (wide, _) = root.dim_in_pixel();
+    let title = texts.end(title, 14.0, (f64::from(wide) - 24.0) / 1.15);
+    let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
+    root.draw(&Text::new(title, (12, 8), bold))
+}
+
+/// A picture with what it says in words, for those who cannot see it.
+pub(super) fn labelled(svg: &str, alternative: &str) -> String {
+    let alternative = maud::html! { (words::clean(alternative)) }.into_string();
+    svg.replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
+}
+
+type Axes = Cartesian2d<plotters::coord::types::RangedCoordf64, plotters::coord::types::RangedCoordf64>;
+
+/// What is written at an axis: most labels, a number as a label, and what it shows.
+pub(super) type Axis<'a> = (usize, &'a dyn Fn(&f64) -> String, String);
+
+/// Quiet axes without a mesh.
+pub(super) fn axes(chart: &mut ChartContext<'_, SVGBackend<'_>, Axes>, across: Axis<'_>, up: Axis<'_>) -> Drawn {
+    chart
+        .configure_mesh()
+        .disable_x_mesh()
+        .disable_y_mesh()
+        .axis_style(rgb(ink::QUIET))
+        .label_style(small())
+        .axis_desc_style(small())
+        .x_labels(across.0)
+        .y_labels(up.0)
+        .x_label_formatter(across.1)
+        .y_label_formatter(up.1)
+        .x_desc(across.2)
+        .y_desc(up.2)
+        .draw()
+}
+
 /// Settling-time histograms, one panel a step, at most [`MOST_PANELS`]; the caption names what is left out. Lines mark
 /// median, 99th percentile and the limit from the rules. Where some windows settle, or lines lie, far beyond the others the
 /// axis has a break, and what is behind it stands in its order, but not to scale.
@@ -54,7 +91,7 @@ pub fn settling_with(scenario: &Scenario, report: &SweepReport, proof: Option<&P
         draw(&root, &mut texts, scenario, report, proof, shown, &panels[shown.len()..]).expect("drawing into memory");
     }
     let alternative = alternative(scenario, shown, proof);
-    texts.titled(svg).replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
+    labelled(&texts.titled(svg), &alternative)
 }
 
 fn draw(
@@ -69,9 +106,7 @@ fn draw(
     root.fill(&WHITE)?;
     let draws = words::count(report.samples);
     let title = format!("{}: settling time (Monte Carlo, {draws} draws)", scenario.title);
-    let title = texts.end(&title, 14.0, (2.0 * f64::from(PANEL.0) - 24.0) / 1.15);
-    let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
-    root.draw(&Text::new(title, (12, 8), bold))?;
+    head(root, texts, &title)?;
     for (i, (window, settling)) in shown.iter().enumerate() {
         let (column, row) = (i as u32 % 2, i as u32 / 2);
         let corner = ((column * PANEL.0) as i32, (HEAD + row * PANEL.1) as i32);
@@ -126,23 +161,15 @@ fn panel(
         .set_label_area_size(LabelAreaPosition::Left, 60)
         .set_label_area_size(LabelAreaPosition::Bottom, 42)
         .build_cartesian_2d(range, 0.0..tallest as f64 * 1.05)?;
-    chart
-        .configure_mesh()
-        .disable_x_mesh()
-        .disable_y_mesh()
-        .axis_style(rgb(ink::QUIET))
-        .label_style(small())
-        .axis_desc_style(small())
-        .x_labels(7)
-        .y_labels(4)
-        .x_label_formatter(&|x| match digits {
-            Some(digits) => format!("{x:.digits$}"),
-            None => words::three(*x),
-        })
-        .y_label_formatter(&|y| words::count(*y as u64))
-        .x_desc(format!("settling time [{unit}]"))
-        .y_desc("draws")
-        .draw()?;
+    let label = |x: &f64| match digits {
+        Some(digits) => format!("{x:.digits$}"),
+        None => words::three(*x),
+    };
+    axes(
+        &mut chart,
+        (7, &label, format!("settling time [{unit}]")),
+        (4, &|y| words::count(*y as u64), "draws".to_string()),
+    )?;
     let bar = |(from, below, count): &(Span, Span, u64)| [(value(*from), 0.0), (value(*below), *count as f64)];
     // outlines would fill narrow bars
     let narrow = bars.len() > MOST_OUTLINED;
@@ -281,9 +308,7 @@ fn alternative(scenario: &Scenario, shown: &[(&WindowReport, &Settling)], proof:
         let bound = proved(proof, window.moment).map_or_else(String::new, |(_, label)| format!(", {label}"));
         format!("{step}: median {}, 99th percentile {}{bound}", settling.median.rounded(), settling.p99.rounded())
     });
-    let text = format!("Settling time. {}.", each.collect::<Vec<_>>().join("; "));
-    let markup = maud::html! { (words::clean(&text)) };
-    markup.into_string()
+    format!("Settling time. {}.", each.collect::<Vec<_>>().join("; "))
 }
 
 #[cfg(test)]

@@ -4,19 +4,15 @@ use plotters::prelude::*;
 use plotters::style::text_anchor::{HPos, Pos, VPos};
 
 use crate::findings::{Asked, Subject};
-use crate::output::charts::{HEAD, MOST_PANELS, PANEL, rgb, small};
+use crate::output::charts::{self, Area, Drawn, HEAD, MOST_PANELS, PANEL, rgb, small};
+use crate::output::fitted::Fitted;
 use crate::output::ink;
-use crate::output::measure::cut_end;
+use crate::output::log_axis::{stretch, ticks};
+use crate::output::shares::{self, unit};
 use crate::output::tables;
 use crate::output::words::{self, six};
 use crate::scenario::{Condition, Scenario};
 use crate::sweep::{Point, Stopped, SweepReport};
-
-/// Most decades with a label.
-const MOST_TICKS: usize = 6;
-
-type Area<'a> = DrawingArea<SVGBackend<'a>, plotters::coord::Shift>;
-type Drawn = Result<(), DrawingAreaErrorKind<std::io::Error>>;
 
 /// One finding with its points, fewest samples first.
 struct Line<'a> {
@@ -93,11 +89,6 @@ pub fn csv(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
     })
 }
 
-/// What shares are shares of.
-fn unit(report: &SweepReport) -> &'static str {
-    if report.plan.tries > 1 { "boards" } else { "draws" }
-}
-
 fn share(point: &Point) -> f64 {
     point.count as f64 / point.of.max(1) as f64
 }
@@ -110,29 +101,22 @@ pub fn svg(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
     let left_out = all.len() - shown.len();
     let rows = shown.len().div_ceil(2).max(1) as u32;
     let foot = if left_out > 0 { 24 } else { 4 };
-    let mut svg = String::new();
+    let (mut svg, mut texts) = (String::new(), Fitted::default());
     {
         let root = SVGBackend::with_string(&mut svg, (2 * PANEL.0, HEAD + rows * PANEL.1 + foot)).into_drawing_area();
-        draw(&root, scenario, asked, report, shown, left_out).expect("drawing into memory");
+        draw(&root, &mut texts, scenario, asked, report, shown, left_out).expect("drawing into memory");
     }
     let each = shown.iter().filter_map(|line| {
         let last = line.points.last()?;
         Some(format!("{}: {}", title(scenario, asked, line), words::percent(share(last))))
     });
     let text = format!("Shares over the draws. {}.", each.collect::<Vec<_>>().join("; "));
-    let alternative = maud::html! { (words::clean(&text)) }.into_string();
-    svg.replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
+    charts::labelled(&texts.titled(svg), &text)
 }
 
 /// `static-0 glitch, green, both let go`, and the condition where it is not the scenario's own delays.
 fn title(scenario: &Scenario, asked: &Asked, line: &Line<'_>) -> String {
-    let named = words::subject(scenario, asked, &line.subject);
-    let mut text = named.shape.map_or_else(String::new, |shape| format!("{shape} "));
-    text += named.kind;
-    let place = named.rule_name.or(named.net).or(named.pattern.as_deref());
-    for part in place.into_iter().chain(named.step) {
-        text += &format!(", {part}");
-    }
+    let mut text = shares::title(scenario, asked, &line.subject);
     if line.condition != Condition::NOMINAL {
         text += &format!(" (condition {})", line.condition);
     }
@@ -141,6 +125,7 @@ fn title(scenario: &Scenario, asked: &Asked, line: &Line<'_>) -> String {
 
 fn draw(
     root: &Area<'_>,
+    texts: &mut Fitted,
     scenario: &Scenario,
     asked: &Asked,
     report: &SweepReport,
@@ -148,21 +133,17 @@ fn draw(
     left_out: usize,
 ) -> Drawn {
     root.fill(&WHITE)?;
-    let room = 2.0 * f64::from(PANEL.0) - 24.0;
     let head = format!(
         "{}: shares of {} with 95 % intervals (Monte Carlo, {} draws)",
         scenario.title,
         unit(report),
         words::count(report.samples)
     );
-    let head = words::clean(&head);
-    let head = cut_end(&head, 14.0, room / 1.15).unwrap_or(head);
-    let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
-    root.draw(&Text::new(head, (12, 8), bold))?;
+    charts::head(root, texts, &head)?;
     for (i, line) in shown.iter().enumerate() {
         let (column, row) = (i as u32 % 2, i as u32 / 2);
         let corner = ((column * PANEL.0) as i32, (HEAD + row * PANEL.1) as i32);
-        panel(&root.clone().shrink(corner, PANEL), scenario, asked, report, line)?;
+        panel(&root.clone().shrink(corner, PANEL), texts, scenario, asked, report, line)?;
     }
     if shown.is_empty() {
         root.draw(&Text::new("Nothing was found in any draw.", (12, HEAD as i32), small()))?;
@@ -175,51 +156,15 @@ fn draw(
     root.present()
 }
 
-/// The part of a log axis that shows some numbers above 0, with a little room at both ends.
-pub(super) fn stretch(numbers: impl Iterator<Item = f64> + Clone) -> (f64, f64) {
-    let low = numbers.clone().fold(f64::INFINITY, f64::min);
-    let high = numbers.fold(0.0, f64::max);
-    let room = 0.05 * libm::log10(high / low).max(0.1);
-    (libm::log10(low) - room, libm::log10(high) + room)
-}
-
-/// Round numbers on a log axis from 10^`from` to 10^`to`, rising: decades; of few decades also twice and five times each; of
-/// less than one, round steps.
-pub(super) fn ticks(from: f64, to: f64) -> Vec<f64> {
-    let inside = |tick: &f64| (from..=to).contains(&libm::log10(*tick));
-    let (first, last) = (libm::floor(from) as i32, libm::ceil(to) as i32);
-    // divided, and not multiplied by a power below 1, so that labels are round
-    let times = |digit: f64, power: i32| match power {
-        0.. => digit * 10f64.powi(power),
-        _ => digit / 10f64.powi(-power),
-    };
-    let each = |digits: &[f64]| -> Vec<f64> {
-        (first..=last).flat_map(|power| digits.iter().map(move |digit| times(*digit, power))).filter(inside).collect()
-    };
-    let decades = each(&[1.0]);
-    if decades.len() >= 4 {
-        let every = decades.len().div_ceil(MOST_TICKS);
-        return decades.into_iter().step_by(every).collect();
-    }
-    let some = each(&[1.0, 2.0, 5.0]);
-    if some.len() >= 3 {
-        return some;
-    }
-    let (low, high) = (libm::exp10(from), libm::exp10(to));
-    let power = libm::floor(libm::log10((high - low) / 3.0)) as i32;
-    let steps = [5.0, 2.0, 1.0].map(|digit| times(digit, power));
-    let step = steps.into_iter().find(|step| (high - low) / step >= 3.0).unwrap_or(steps[2]);
-    let numbers = libm::ceil(low / step) as u64..=libm::floor(high / step) as u64;
-    let each = numbers.map(|n| match power {
-        0.. => n as f64 * step,
-        // as above
-        _ => n as f64 * (step * 10f64.powi(-power)).round() / 10f64.powi(-power),
-    });
-    each.filter(inside).take(3 * MOST_TICKS).collect()
-}
-
 /// One finding.
-fn panel(area: &Area<'_>, scenario: &Scenario, asked: &Asked, report: &SweepReport, line: &Line<'_>) -> Drawn {
+fn panel(
+    area: &Area<'_>,
+    texts: &mut Fitted,
+    scenario: &Scenario,
+    asked: &Asked,
+    report: &SweepReport,
+    line: &Line<'_>,
+) -> Drawn {
     let Some(stopped) = &report.stopped else { return Ok(()) };
     let marks: Vec<(f64, f64, f64, f64)> = line
         .points
@@ -229,8 +174,7 @@ fn panel(area: &Area<'_>, scenario: &Scenario, asked: &Asked, report: &SweepRepo
             (point.samples as f64, share(point), low, high)
         })
         .collect();
-    let text = words::clean(&title(scenario, asked, line));
-    let caption = cut_end(&text, ink::BODY, f64::from(PANEL.0) - 90.0).unwrap_or(text);
+    let caption = texts.end(&title(scenario, asked, line), ink::BODY, f64::from(PANEL.0) - 90.0);
     area.draw(&Text::new(caption, (70, 0), ("sans-serif", ink::BODY * 1.24).into_font().color(&rgb(ink::INK))))?;
 
     let (from_x, to_x) = stretch(marks.iter().map(|it| it.0));
@@ -271,28 +215,4 @@ fn panel(area: &Area<'_>, scenario: &Scenario, asked: &Asked, report: &SweepRepo
         area.draw(&Circle::new((x, middle), 3, rgb(ink::INK).filled()))?;
     }
     Ok(())
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    fn between(low: f64, high: f64) -> Vec<f64> {
-        ticks(libm::log10(low), libm::log10(high))
-    }
-
-    #[test]
-    fn ticks_are_round_and_few() {
-        assert_eq!(between(900.0, 9000.0), [1000.0, 2000.0, 5000.0]);
-        assert_eq!(between(900.0, 2_000_000.0), [1e3, 1e4, 1e5, 1e6]);
-        assert_eq!(between(0.11, 0.17), [0.12, 0.14, 0.16]);
-        assert_eq!(between(3e-5, 4e-2), [5e-5, 1e-4, 2e-4, 5e-4, 1e-3, 2e-3, 5e-3, 1e-2, 2e-2]);
-        assert_eq!(between(0.9991, 1.0), [0.9992, 0.9994, 0.9996, 0.9998, 1.0]);
-        assert_eq!(between(2e-9, 0.9).len(), 4, "every second decade");
-        for (low, high) in [(1e-9, 1.1e-9), (0.5, 0.5001), (1e3, 4e18), (0.9, 1.3), (1.0, 1.25)] {
-            let ticks = between(low, high);
-            assert!((2..=12).contains(&ticks.len()), "{low} {high}: {ticks:?}");
-            assert!(ticks.windows(2).all(|two| two[0] < two[1]), "{ticks:?}");
-        }
-    }
 }

@@ -4,7 +4,8 @@
 use plotters::prelude::*;
 use plotters::style::text_anchor::{HPos, Pos, VPos};
 
-use super::charts::{Area, Drawn, fitting, rgb, small};
+use super::charts::{Area, Drawn, axes, fitting, head, labelled, rgb, small};
+use super::fitted::Fitted;
 use super::ink;
 use super::limit_words::{best, draws, sentence, value};
 use super::measure::{cut_end, width};
@@ -32,19 +33,14 @@ pub fn limit(scenario: &Scenario, report: &LimitReport) -> String {
         let root = SVGBackend::with_string(&mut svg, SIZE).into_drawing_area();
         draw(&root, scenario, report).expect("drawing into memory");
     }
-    let text = words::clean(&words::sentence(&sentence(scenario, report)));
-    let alternative = maud::html! { (text) }.into_string();
-    svg.replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
+    labelled(&svg, &words::sentence(&sentence(scenario, report)))
 }
 
 fn draw(root: &Area<'_>, scenario: &Scenario, report: &LimitReport) -> Drawn {
     root.fill(&WHITE)?;
     let parameter = report.range.parameter.words(scenario);
     let room = f64::from(SIZE.0) - 24.0;
-    let title = words::clean(&format!("{}: {parameter}", scenario.title));
-    let title = cut_end(&title, 14.0, room / 1.15).unwrap_or(title);
-    let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
-    root.draw(&Text::new(title, (12, 8), bold))?;
+    head(root, &mut Fitted::default(), &format!("{}: {parameter}", scenario.title))?;
     let area = root.clone().shrink((0, HEAD), (SIZE.0, SIZE.1 - HEAD - FOOT));
     curve(&area, scenario, report, &parameter)?;
     let notes =
@@ -102,20 +98,11 @@ fn curve(area: &Area<'_>, scenario: &Scenario, report: &LimitReport, parameter: 
     chart.draw_series(fails.map(|(from, to, _)| Rectangle::new([(*from, -4.0), (*to, 104.0)], ground)))?;
     let (axis, description) = (words::clean(parameter), room_of(area));
     let axis = cut_end(&axis, ink::SMALL, description).unwrap_or(axis);
-    chart
-        .configure_mesh()
-        .disable_x_mesh()
-        .disable_y_mesh()
-        .axis_style(rgb(ink::QUIET))
-        .label_style(small())
-        .axis_desc_style(small())
-        .x_labels(9)
-        .y_labels(6)
-        .x_label_formatter(&|x| words::three(*x))
-        .y_label_formatter(&|y| words::three(*y))
-        .x_desc(format!("{axis} [{unit}]"))
-        .y_desc("draws that fail [%]")
-        .draw()?;
+    axes(
+        &mut chart,
+        (9, &|x| words::three(*x), format!("{axis} [{unit}]")),
+        (6, &|y| words::three(*y), "draws that fail [%]".to_string()),
+    )?;
     let percent = |share: f64| share * 100.0;
     let at = |point: &Point| (x(point.value), percent(point.share()));
     let tried = || points.iter().filter(|point| point.refused.is_none());

@@ -3,10 +3,10 @@
 use plotters::prelude::*;
 use plotters::style::text_anchor::{HPos, Pos, VPos};
 
-use super::charts::{Area, Drawn, MOST_PANELS, fitting, rgb, small};
+use super::charts::{Area, Drawn, HEAD, MOST_PANELS, axes, fitting, head, labelled, rgb, small};
+use super::fitted::Fitted;
 use super::ink;
 use super::margins::{BARS, OfRule, of_rules};
-use super::measure::cut_end;
 use super::words;
 use crate::scenario::Scenario;
 use crate::sweep::SweepReport;
@@ -14,8 +14,6 @@ use crate::time::{Span, rounded};
 
 /// Size of a panel, pixels.
 const PANEL: (u32, u32) = (500, 264);
-/// Height of the title, pixels.
-const HEAD: u32 = 34;
 /// Height of a line of text, pixels.
 const LINE: u32 = 16;
 /// Most rules without a margin that are named.
@@ -45,13 +43,12 @@ pub fn svg(scenario: &Scenario, report: &SweepReport) -> String {
     }
     let rows = shown.len().div_ceil(2) as u32;
     let size = (2 * PANEL.0, HEAD + rows * PANEL.1 + LINE * notes.len() as u32 + 10);
-    let mut svg = String::new();
+    let (mut svg, mut texts) = (String::new(), Fitted::default());
     {
         let root = SVGBackend::with_string(&mut svg, size).into_drawing_area();
-        draw(&root, scenario, report, shown, &notes).expect("drawing into memory");
+        draw(&root, &mut texts, scenario, report, shown, &notes).expect("drawing into memory");
     }
-    let alternative = maud::html! { (words::clean(&alternative(scenario, shown, &notes))) };
-    svg.replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{}\" ", alternative.into_string()), 1)
+    labelled(&texts.titled(svg), &alternative(scenario, shown, &notes))
 }
 
 /// What has no panel, in lines.
@@ -73,29 +70,32 @@ fn notes(scenario: &Scenario, left_out: &[OfRule<'_>], none: &[OfRule<'_>]) -> V
     notes
 }
 
-fn draw(root: &Area<'_>, scenario: &Scenario, report: &SweepReport, shown: &[OfRule<'_>], notes: &[String]) -> Drawn {
+fn draw(
+    root: &Area<'_>,
+    texts: &mut Fitted,
+    scenario: &Scenario,
+    report: &SweepReport,
+    shown: &[OfRule<'_>],
+    notes: &[String],
+) -> Drawn {
     root.fill(&WHITE)?;
     let draws = words::many(report.samples, "draw");
-    let title = words::clean(&format!("{}: margins of rules (Monte Carlo, {draws})", scenario.title));
-    let title = cut_end(&title, 14.0, (2.0 * f64::from(PANEL.0) - 24.0) / 1.15).unwrap_or(title);
-    let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
-    root.draw(&Text::new(title, (12, 8), bold))?;
+    head(root, texts, &format!("{}: margins of rules (Monte Carlo, {draws})", scenario.title))?;
     for (i, rule) in shown.iter().enumerate() {
         let (column, row) = (i as u32 % 2, i as u32 / 2);
         let corner = ((column * PANEL.0) as i32, (HEAD + row * PANEL.1) as i32);
-        panel(&root.clone().shrink(corner, PANEL), scenario, rule)?;
+        panel(&root.clone().shrink(corner, PANEL), texts, scenario, rule)?;
     }
     let from = HEAD + shown.len().div_ceil(2) as u32 * PANEL.1;
     for (i, note) in notes.iter().enumerate() {
-        let note = words::clean(note);
-        let note = cut_end(&note, ink::SMALL, 2.0 * f64::from(PANEL.0) - 24.0).unwrap_or(note);
+        let note = texts.end(note, ink::SMALL, 2.0 * f64::from(PANEL.0) - 24.0);
         root.draw(&Text::new(note, (12, (from + LINE * i as u32) as i32), small()))?;
     }
     root.present()
 }
 
 /// One histogram.
-fn panel(area: &Area<'_>, scenario: &Scenario, rule: &OfRule<'_>) -> Drawn {
+fn panel(area: &Area<'_>, texts: &mut Fitted, scenario: &Scenario, rule: &OfRule<'_>) -> Drawn {
     let (wide, bars) = rule.margins.bars(BARS);
     let (Some(first), Some(last), Some((least, _))) = (bars.first(), bars.last(), rule.least) else { return Ok(()) };
     let longest = first.0.unsigned_abs().max(last.1.unsigned_abs());
@@ -107,10 +107,9 @@ fn panel(area: &Area<'_>, scenario: &Scenario, rule: &OfRule<'_>) -> Drawn {
     let room = (high - low) * f64::from(SIDE) / (pixels - 2.0 * f64::from(SIDE));
     let tallest = bars.iter().map(|bar| bar.2).max().unwrap_or(1);
 
-    let texts = [(rule.title(scenario), ink::BODY), (rule.figures(scenario), ink::SMALL), (rule.without(), ink::SMALL)];
-    for (i, (text, size)) in texts.into_iter().enumerate() {
-        let text = words::clean(&text);
-        let text = cut_end(&text, size, f64::from(PANEL.0) - 78.0).unwrap_or(text);
+    let lines = [(rule.title(scenario), ink::BODY), (rule.figures(scenario), ink::SMALL), (rule.without(), ink::SMALL)];
+    for (i, (text, size)) in lines.into_iter().enumerate() {
+        let text = texts.end(&text, size, f64::from(PANEL.0) - 78.0);
         let font = ("sans-serif", size * 1.24).into_font().color(&rgb(ink::INK));
         area.draw(&Text::new(text, ((LEFT.0 + LEFT.1) as i32, 15 * i as i32), font))?;
     }
@@ -122,20 +121,11 @@ fn panel(area: &Area<'_>, scenario: &Scenario, rule: &OfRule<'_>) -> Drawn {
         .set_label_area_size(LabelAreaPosition::Left, LEFT.1)
         .set_label_area_size(LabelAreaPosition::Bottom, 42)
         .build_cartesian_2d(low - room..high + room, 0.0..tallest as f64 * 1.05)?;
-    chart
-        .configure_mesh()
-        .disable_x_mesh()
-        .disable_y_mesh()
-        .axis_style(rgb(ink::QUIET))
-        .label_style(small())
-        .axis_desc_style(small())
-        .x_labels(7)
-        .y_labels(4)
-        .x_label_formatter(&|x| words::three(*x))
-        .y_label_formatter(&|y| words::count(*y as u64))
-        .x_desc(format!("margin [{unit}], in bars of {}", rounded(wide)))
-        .y_desc("draws")
-        .draw()?;
+    axes(
+        &mut chart,
+        (7, &|x| words::three(*x), format!("margin [{unit}], in bars of {}", rounded(wide))),
+        (4, &|y| words::count(*y as u64), "draws".to_string()),
+    )?;
     let height = |count: u64| (count as f64).max(tallest as f64 * LEAST_HEIGHT);
     let bar = |(from, below, count): &(i128, i128, u64)| [(value(*from), 0.0), (value(*below), height(*count))];
     // outlines would fill narrow bars

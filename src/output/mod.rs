@@ -24,6 +24,7 @@ pub mod limit_charts;
 pub mod limit_map;
 pub mod limit_tables;
 mod limit_words;
+mod log_axis;
 pub mod margin_charts;
 pub mod margins;
 mod measure;

@@ -4,7 +4,7 @@ use plotters::prelude::*;
 use plotters::style::text_anchor::{HPos, Pos, VPos};
 
 use crate::output::causes::pull_remark;
-use crate::output::charts::{Area, Drawn, HEAD, rgb, small};
+use crate::output::charts::{self, Area, Drawn, HEAD, rgb, small};
 use crate::output::deciding;
 use crate::output::fitted::Fitted;
 use crate::output::ink;
@@ -148,8 +148,7 @@ pub fn svg(scenario: &Scenario, review: &Review) -> Option<String> {
         format!("{title}: {}", said.join(", "))
     });
     let text = format!("Which delays decide. {}.", each.collect::<Vec<_>>().join("; "));
-    let alternative = maud::html! { (words::clean(&text)) }.into_string();
-    Some(texts.titled(svg).replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1))
+    Some(charts::labelled(&texts.titled(svg), &text))
 }
 
 /// What the proof says of the same question.
@@ -177,9 +176,7 @@ fn draw(
 ) -> Drawn {
     root.fill(&WHITE)?;
     let room = f64::from(WIDE) - 24.0;
-    let head = texts.end(&format!("{}: which delays decide", scenario.title), 14.0, room / 1.15);
-    let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
-    root.draw(&Text::new(head, (12, 8), bold))?;
+    charts::head(root, texts, &format!("{}: which delays decide", scenario.title))?;
     let mut top = HEAD as i32;
     for looked in shown {
         let Looked { number, pulls, .. } = looked;

@@ -4,10 +4,10 @@ use plotters::prelude::*;
 use plotters::style::text_anchor::{HPos, Pos, VPos};
 
 use crate::findings::{Asked, Subject};
-use crate::output::charts::{Area, Drawn, HEAD, rgb, small};
-use crate::output::convergence::{stretch, ticks};
+use crate::output::charts::{self, Area, Drawn, HEAD, rgb, small};
 use crate::output::fitted::Fitted;
 use crate::output::ink;
+use crate::output::log_axis::{stretch, ticks};
 use crate::output::tables;
 use crate::output::words::{self, six};
 use crate::scenario::{Condition, Scenario};
@@ -103,7 +103,7 @@ pub(super) fn title(scenario: &Scenario, asked: &Asked, subject: &Subject) -> St
 }
 
 /// What shares are shares of.
-fn unit(report: &SweepReport) -> &'static str {
+pub(super) fn unit(report: &SweepReport) -> &'static str {
     if report.plan.tries > 1 { "boards" } else { "draws" }
 }
 
@@ -196,8 +196,7 @@ pub fn svg(scenario: &Scenario, asked: &Asked, report: &SweepReport) -> String {
     }
     let each: Vec<String> = shown.iter().map(|row| format!("{}: {}", row.label, told(row))).collect();
     let said = if each.is_empty() { "Nothing was found".to_string() } else { each.join("; ") };
-    let alternative = maud::html! { (words::clean(&format!("Shares of {}. {said}.", unit(report)))) }.into_string();
-    texts.titled(svg).replacen("<svg ", &format!("<svg role=\"img\" aria-label=\"{alternative}\" "), 1)
+    charts::labelled(&texts.titled(svg), &format!("Shares of {}. {said}.", unit(report)))
 }
 
 /// The figure in words, beside the row.
@@ -231,9 +230,7 @@ fn draw(
         unit(report),
         words::count(report.samples)
     );
-    let head = texts.end(&head, 14.0, room / 1.15);
-    let bold = ("sans-serif", 14.0 * 1.24, FontStyle::Bold).into_font().color(&rgb(ink::INK));
-    root.draw(&Text::new(head, (12, 8), bold))?;
+    charts::head(root, texts, &head)?;
     if shown.is_empty() {
         root.draw(&Text::new("Nothing was found in any draw.", (12, HEAD as i32), small()))?;
         return root.present();

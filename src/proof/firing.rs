@@ -64,8 +64,7 @@ impl<W: Watch, S: Semantics, C: Cell> Explorer<'_, W, S, C> {
             self.cool(&firing);
             self.forget_toggles(key, movers);
             let (number, fates) = self.next_key(&firing);
-            let late = |mover: &Mover| matches!(mover, Mover::Late(_) | Mover::Toggle(..));
-            let moves = firing.opens() || movers.iter().any(late);
+            let moves = firing.opens() || movers.iter().any(Mover::is_late);
             let next = self.found.key(number);
             if self.plant.ends && moves && next.skew() == 0 && !outside::ended(self.plant, next) {
                 let last = self.at_end(number);

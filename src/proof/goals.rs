@@ -107,10 +107,7 @@ impl Goal {
         match self {
             Goal::Reached => vec![Vec::new()],
             Goal::Late { bound, .. } => {
-                let moves = |mover: &Mover| {
-                    matches!(mover, Mover::Step(_) | Mover::Edge(_) | Mover::Late(_) | Mover::Toggle(..))
-                };
-                let begin = (0..last).rev().find(|block| trace[*block].movers.iter().any(moves));
+                let begin = (0..last).rev().find(|block| trace[*block].movers.iter().any(Mover::moves_inputs));
                 begin.map_or_else(Vec::new, |begin| vec![vec![later(time(begin), time(last), *bound)]])
             }
             Goal::Short { net, least } => {

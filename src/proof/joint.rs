@@ -66,7 +66,7 @@ impl Joint {
         // a step that disables nothing goes first; beside one that does all others may matter
         let stepping = enabled & steps & !if skewed { 0 } else { harmless(enabled & steps) };
         let alone = enabled & !steps & !harmless(enabled & !steps);
-        let late = of(|agent| matches!(agent.mover, Mover::Late(_) | Mover::Toggle(..)));
+        let late = of(|agent| agent.mover.is_late());
         // one input toggles once, for the last time or not
         let twice = |set: u64| {
             let entry = |i: usize| match info.agents[i].mover {

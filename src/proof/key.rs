@@ -305,6 +305,18 @@ pub enum Mover {
     Toggle(u32, bool),
 }
 
+impl Mover {
+    /// Does it change an input later than its step?
+    pub(super) fn is_late(&self) -> bool {
+        matches!(self, Mover::Late(_) | Mover::Toggle(..))
+    }
+
+    /// Does it change inputs?
+    pub(super) fn moves_inputs(&self) -> bool {
+        self.is_late() || matches!(self, Mover::Step(_) | Mover::Edge(_))
+    }
+}
+
 /// One mover of a key with its clock and range.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Agent {

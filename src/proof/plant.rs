@@ -170,10 +170,7 @@ impl Plant {
             if let Place::When { pattern, .. } = &step.place {
                 of.extend(pattern.iter().map(|entry| entry.0));
                 // the pattern is looked for once the inputs of the step before have changed
-                let before = s
-                    .checked_sub(1)
-                    .map(|before| &stimulus.steps[before])
-                    .filter(|it| it.skew.is_some() || it.bounce.is_some());
+                let before = s.checked_sub(1).map(|before| &stimulus.steps[before]).filter(|it| it.moves_on());
                 of.extend(before.into_iter().flat_map(|step| &step.set).map(|entry| entry.0));
             }
         }

@@ -476,8 +476,7 @@ impl Walk<'_> {
         let plant = self.plant;
         if !block.came {
             let shows = plant.shows_pattern(self.steps, &block.values);
-            let late =
-                block.movers.iter().any(|mover| matches!(mover, Mover::Late(_) | Mover::Toggle(..) | Mover::Step(_)));
+            let late = block.movers.iter().any(|mover| mover.is_late() || matches!(mover, Mover::Step(_)));
             self.goes_on = (shows && !late).then_some(number);
             return;
         }
@@ -566,7 +565,7 @@ impl Walk<'_> {
             }
             // what a step waits for is like a gate that reads its pattern
             let pattern = plant.steps.get(self.steps).map_or(&[][..], |step| &step.pattern);
-            let late = block.movers.iter().any(|mover| matches!(mover, Mover::Late(_) | Mover::Toggle(..)));
+            let late = block.movers.iter().any(Mover::is_late);
             if late || pattern.iter().any(|entry| changed.contains(&(entry.0 as usize))) {
                 pattern.iter().for_each(|entry| see(entry.0 as usize));
             }

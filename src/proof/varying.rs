@@ -194,7 +194,7 @@ fn live<W: Watch>(world: &World, watch: &W, breaks: Breaks<'_>, budget: &Budget)
 
 /// Does it come from outside?
 fn from_outside(mover: &Mover) -> bool {
-    matches!(mover, Mover::Step(_) | Mover::Edge(_) | Mover::Late(_) | Mover::Apart)
+    mover.moves_inputs() || matches!(mover, Mover::Apart)
 }
 
 impl Kind {
@@ -319,8 +319,7 @@ impl Goal {
             Goal::Long { pattern, .. } => !pattern.iter().all(|(net, value)| bit(start, *net as usize) == *value),
             // the time counts from what changes an input of the cone, and from no idle step
             Goal::Late { .. } => {
-                let moves = |mover: &Mover| matches!(mover, Mover::Step(_) | Mover::Edge(_) | Mover::Late(_));
-                let begin = (0..last).rev().find(|block| trace[*block].movers.iter().any(moves));
+                let begin = (0..last).rev().find(|block| trace[*block].movers.iter().any(Mover::moves_inputs));
                 begin.is_some_and(|block| {
                     (0..plant.inputs as u32).any(|net| plant.core[net as usize] && changes(net, block).is_some())
                 })

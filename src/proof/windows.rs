@@ -48,7 +48,7 @@ impl Prover<'_> {
             // the time counts from the last input change: that of a part may be another than that of the circuit
             let step = self.scenario.stimulus.moments.get(moment as usize);
             let step = step.and_then(|moment| self.scenario.stimulus.step_of(moment));
-            let moves_on = step.filter(|step| step.skew.is_some() || step.bounce.is_some());
+            let moves_on = step.filter(|step| step.moves_on());
             let apart =
                 |step: &Step| parts.len() > 1 || step.set.iter().any(|(net, _)| circuit.readers(*net).is_empty());
             if let (Some(settling), true) = (&mut window.settling, moves_on.is_some_and(apart)) {

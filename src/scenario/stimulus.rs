@@ -88,6 +88,13 @@ pub struct Step {
     pub mark: Mark,
 }
 
+impl Step {
+    /// May its inputs still change after it, by skew or bounce?
+    pub fn moves_on(&self) -> bool {
+        self.skew.is_some() || self.bounce.is_some()
+    }
+}
+
 /// When a step comes. A range is drawn per try; typ, min and max runs take middle, lo, hi.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub enum Place {
